@@ -1,0 +1,1 @@
+"""The SPICE language as Lark grammars; read as data, never imported."""

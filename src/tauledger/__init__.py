@@ -1,0 +1,1 @@
+"""tauledger reconciles the hand analysis of a transistor amplifier with its SPICE simulation."""

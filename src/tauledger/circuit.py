@@ -1,0 +1,174 @@
+"""What was read from the netlist: the flat circuit, and the one record that says how to change it.
+
+Nodes and elements keep the spelling in which the netlist first wrote them; two spellings that differ only in
+case are the same thing (`fold`). Node 0 is ground. `card` and `path` are the two integers from which the netlist
+room finds file, line and column again.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+from typing import Literal
+
+import numpy as np
+from numpy.typing import NDArray
+
+GROUND = "0"
+
+PortKind = Literal["voltage", "current"]
+
+
+def fold(name: str) -> str:
+    """Give the key under which SPICE compares names: ASCII upper case folded to lower case."""
+    return "".join(chr(ord(c) + 32) if "A" <= c <= "Z" else c for c in name)
+
+
+@dataclass(frozen=True, slots=True)
+class Place:
+    """A position in a file: path as typed, line and column from 1, and the physical line itself."""
+
+    file: str
+    line: int
+    column: int
+    text: str
+
+
+@dataclass(frozen=True, slots=True)
+class Port:
+    """Where a signal is taken: a node voltage, a difference of two, or the current through a voltage source.
+
+    plus, minus: node names. through: name of the voltage source (or inductor) for a current.
+    """
+
+    plus: str
+    minus: str = GROUND
+    kind: PortKind = "voltage"
+    through: str = ""
+
+    def __str__(self) -> str:
+        if self.kind == "current":
+            return f"i({self.through})"
+        return f"v({self.plus})" if self.minus == GROUND else f"v({self.plus},{self.minus})"
+
+
+@dataclass(frozen=True, slots=True)
+class Drive:
+    """One driven source: its name, what it forces, and its complex AC amplitude in V or A."""
+
+    source: str
+    kind: PortKind
+    amplitude: complex
+
+
+@dataclass(frozen=True, slots=True)
+class Passives:
+    """All plain resistors, capacitors and inductors as columns of equal length.
+
+    kind: one of R, C, L each. a, b: node numbers (n,). value: ohm, farad or henry (n,), multiplicity included.
+    card, path: origin of each (n,).
+    """
+
+    kind: str
+    name: tuple[str, ...]
+    a: NDArray[np.int32]
+    b: NDArray[np.int32]
+    value: NDArray[np.float64]
+    card: NDArray[np.int32]
+    path: NDArray[np.int32]
+
+    def __len__(self) -> int:
+        return len(self.name)
+
+
+@dataclass(frozen=True, slots=True)
+class Element:
+    """One element that is not a plain R, C or L.
+
+    letter: element letter in upper case. nodes: node numbers in the order of the card. model: name of the model
+    or empty. parameters: (name, value) pairs in SI units, names folded; a V or I source has dc, acmag, acphase (degrees).
+    """
+
+    letter: str
+    name: str
+    nodes: tuple[int, ...]
+    model: str
+    parameters: tuple[tuple[str, float], ...]
+    card: int
+    path: int
+
+    def parameter(self, name: str, default: float) -> float:
+        """Give one parameter by its folded name, or `default` where the card does not set it."""
+        return dict(self.parameters).get(name, default)
+
+
+@dataclass(frozen=True, slots=True)
+class Model:
+    """One `.model` card: its flat name, type and level, and its parameters in SI units, names folded."""
+
+    name: str
+    type: str
+    level: int
+    parameters: tuple[tuple[str, float], ...]
+    card: int
+    path: int
+
+    def parameter(self, name: str, default: float) -> float:
+        """Give one parameter by its folded name, or `default` where the card does not set it."""
+        return dict(self.parameters).get(name, default)
+
+
+@dataclass(frozen=True, slots=True)
+class Load:
+    """A resistor (ohm) or capacitor (farad) added between two nodes, e.g. a probe."""
+
+    kind: Literal["R", "C"]
+    plus: str
+    minus: str
+    value: float
+
+
+@dataclass(frozen=True, slots=True)
+class Change:
+    """How a circuit differs from its netlist: the one record behind every option and condition.
+
+    temperature_c: analysis temperature in °C, or None. parameters: global `.param` values. elements: values of R, C, L
+    (or the dc value of V, I; the gain of G) by flat name. models: (model, parameter, value). loads: added parts.
+    Names are compared folded.
+    """
+
+    temperature_c: float | None = None
+    parameters: tuple[tuple[str, float], ...] = ()
+    elements: tuple[tuple[str, float], ...] = ()
+    models: tuple[tuple[str, str, float], ...] = ()
+    loads: tuple[Load, ...] = ()
+
+
+NO_CHANGE = Change()
+
+
+@dataclass(frozen=True, slots=True)
+class Circuit:
+    """The flat circuit for operating point and AC: what the engine is given and the network is rebuilt from.
+
+    nodes: node names by number; nodes[0] is "0". drive: the sources that are driven, with complex amplitude.
+    temperature_c, tnom_c: analysis and nominal temperature in °C. options: (name, value) of those options that change
+    the result (gmin). models: by flat name.
+    """
+
+    title: str
+    nodes: tuple[str, ...]
+    passives: Passives
+    elements: tuple[Element, ...]
+    models: tuple[Model, ...]
+    drive: tuple[Drive, ...]
+    output: Port
+    temperature_c: float = 27.0
+    tnom_c: float = 27.0
+    options: tuple[tuple[str, float], ...] = field(default=())
+
+    def model(self, name: str) -> Model:
+        """Give the model with this flat name; KeyError where there is none."""
+        for model in self.models:
+            if model.name == name:
+                return model
+        raise KeyError(name)

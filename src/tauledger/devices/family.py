@@ -1,0 +1,116 @@
+"""The contract of a device family: what it is called, what to observe, and its small-signal parts.
+
+A family knows what ngspice calls a thing, not how to ask for it. It gives labelled parts, a hand model (`Transconductor`)
+and the figures of its operating point; nothing downstream knows which family a part came from.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass
+
+from tauledger.circuit import Circuit, Element, Model
+from tauledger.devices.parts import Part
+from tauledger.solution import Bias, Observation
+
+
+@dataclass(frozen=True, slots=True)
+class Transconductor:
+    """The hand model of one transistor: a current gm·v(control, common) from output to common, with r_pi and r_o.
+
+    control, common, output: nodes of the network, the inner ones where series resistances exist.
+    body: node of the second control, or None; g_mb in S acts on v(body, common).
+    gm in S (negative where the device inverts). r_pi, r_o in ohm; None where there is none.
+    """
+
+    owner: str
+    control: str
+    common: str
+    output: str
+    gm: float
+    r_pi: float | None = None
+    r_o: float | None = None
+    body: str | None = None
+    g_mb: float = 0.0
+
+
+@dataclass(frozen=True, slots=True)
+class Terminal:
+    """One terminal of a device: its word ("base"), the netlist's node, and the inner node behind its series resistance.
+
+    inner equals outer where there is no series resistance.
+    """
+
+    word: str
+    outer: str
+    inner: str
+
+
+@dataclass(frozen=True, slots=True)
+class Device:
+    """One transistor (or diode) as linearised at its operating point.
+
+    kind: "npn", "pnp", … region: in whole words ("active", "saturated", "off", "reversed").
+    figures: (symbol, value in SI units) in the order in which a table shows them: i_c, v_ce, gm, r_pi, r_o, c_pi, c_mu, f_t.
+    without_charge: the model gives this device no capacitance at all.
+    """
+
+    name: str
+    kind: str
+    region: str
+    figures: tuple[tuple[str, float], ...]
+    terminals: tuple[Terminal, ...]
+    cell: Transconductor | None
+    parts: tuple[Part, ...]
+    without_charge: bool = False
+
+
+@dataclass(frozen=True, slots=True)
+class Refusal:
+    """Why an element or its model cannot be rebuilt, and what would help; `parameter` names the culprit on the model card."""
+
+    parameter: str
+    reason: str
+    hint: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class Family:
+    """One device family, as its file in devices/ describes it.
+
+    letter: element letter. model_types: types of `.model` that belong to it, e.g. ("npn", "pnp"), empty without model.
+    levels: model levels it knows. terminals: words in card order, optional ones last. optional_terminals: how many of those
+    may be missing. instance_parameters, model_parameters: names (folded) that ngspice accepts on the card and on the model.
+    observe: what to read from the engine, or None for nothing. linearise: element at its bias → parts and figures.
+    refuse: a Refusal where this element or model cannot be rebuilt, else None.
+    """
+
+    letter: str
+    words: str
+    terminals: tuple[str, ...]
+    linearise: Callable[[Circuit, Element, Bias], Device]
+    observe: Callable[[Element], Observation | None]
+    refuse: Callable[[Element, Model | None], Refusal | None]
+    optional_terminals: int = 0
+    model_types: tuple[str, ...] = ()
+    levels: tuple[int, ...] = ()
+    instance_parameters: frozenset[str] = frozenset()
+    model_parameters: frozenset[str] = frozenset()
+
+
+@dataclass(frozen=True, slots=True)
+class Linearised:
+    """The whole circuit linearised at its operating point: every part of the network, and the devices among them."""
+
+    parts: tuple[Part, ...]
+    devices: tuple[Device, ...]
+
+
+def inner_node(owner: str, terminal: str) -> str:
+    """Name the node behind a series resistance; the quote cannot stand in a netlist's node name, so it never collides."""
+    return f"{owner}'{terminal}"
+
+
+def readings_of(bias: Bias, element: Element) -> Mapping[str, float]:
+    """Give the readings of one element, by ngspice's parameter name."""
+    return bias.readings[element.name]

@@ -1,0 +1,173 @@
+"""Parts → the matrices of the small-signal network, by modified nodal analysis.
+
+Y(s) = G + s·C acts on the unknowns x = (node voltages, branch currents); Y x = b is the forward problem with the drive b,
+Yᵀ λ = e the adjoint problem with the output e, and H = eᵀ x = λᵀ b.
+Branch unknowns belong to voltage sources (v_a - v_b = V) and inductors (v_a - v_b - s·L·i = 0).
+
+Source: Ho, Ruehli and Brennan, "The modified nodal approach to network analysis", IEEE Trans. Circuits Syst. CAS-22(6), 1975.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Mapping
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from tauledger.circuit import GROUND, Port, fold
+from tauledger.devices.parts import Part
+from tauledger.errors import NetworkError
+
+
+@dataclass(frozen=True, slots=True)
+class Triplets:
+    """A sparse real matrix as coordinates; equal coordinates add. row, column: (nnz,) int; value: (nnz,)."""
+
+    row: NDArray[np.intp]
+    column: NDArray[np.intp]
+    value: NDArray[np.float64]
+
+    def dense(self, size: int) -> NDArray[np.float64]:
+        """Give the (size, size) array."""
+        matrix = np.zeros((size, size))
+        np.add.at(matrix, (self.row, self.column), self.value)
+        return matrix
+
+
+@dataclass(frozen=True, slots=True)
+class Network:
+    """The assembled small-signal network.
+
+    parts: what it was built from. unknowns: node names, then the owners of the branch currents. n_nodes: how many are nodes.
+    conductance G and capacitance C: triplets of order n. drive b: (n,) complex, V or A. output e: (n,) real.
+    """
+
+    parts: tuple[Part, ...]
+    port: Port
+    unknowns: tuple[str, ...]
+    n_nodes: int
+    conductance: Triplets
+    capacitance: Triplets
+    drive: NDArray[np.complex128]
+    output: NDArray[np.float64]
+
+    @classmethod
+    def from_parts(cls, parts: Iterable[Part], *, output: Port, drive: Mapping[str, complex] | None = None) -> Network:
+        """Assemble parts into a network.
+
+        drive: complex amplitude by source name; sources not named keep the amplitude of their part.
+        Raises NetworkError where the output names a node or branch that no part touches.
+        """
+        return assemble(tuple(parts), output, {fold(name): value for name, value in (drive or {}).items()})
+
+    @property
+    def size(self) -> int:
+        """Number of unknowns n."""
+        return len(self.unknowns)
+
+    def index(self, node: str) -> int | None:
+        """Give the row of a node, or None for ground."""
+        return None if node == GROUND else self.unknowns[: self.n_nodes].index(node)
+
+    def branch(self, owner: str) -> int:
+        """Give the row of the branch current of a voltage source or inductor."""
+        return self.n_nodes + [fold(name) for name in self.unknowns[self.n_nodes :]].index(fold(owner))
+
+    def part(self, name: str) -> Part:
+        """Give the part with this name ("CL", "Q1.c_mu"); KeyError where there is none."""
+        for part in self.parts:
+            if part.name == name:
+                return part
+        raise KeyError(name)
+
+
+def assemble(parts: tuple[Part, ...], port: Port, drive: Mapping[str, complex]) -> Network:
+    """Stamp every part; `drive` overrides the amplitudes of the sources it names (folded).
+
+    Raises NetworkError where the output names a node or branch that no part touches.
+    """
+    nodes = list(dict.fromkeys(node for part in parts for node in part.nodes if node != GROUND))
+    branches = [part.owner for part in parts if part.kind in ("voltage source", "inductance")]
+    at: dict[str, int] = {node: row for row, node in enumerate(nodes)}
+    n = len(nodes) + len(branches)
+    g_rows: list[tuple[int, int, float]] = []
+    c_rows: list[tuple[int, int, float]] = []
+    b = np.zeros(n, dtype=complex)
+    branch = len(nodes)
+    for part in parts:
+        rows = [at.get(node, -1) for node in part.nodes]
+        match part.kind:
+            case "conductance" | "capacitance":
+                p, m = rows
+                _stamp(g_rows if part.kind == "conductance" else c_rows, (p, m), (p, m), part.value)
+            case "transconductance" | "transcapacitance":
+                p, m, cp, cm = rows
+                _stamp(g_rows if part.kind == "transconductance" else c_rows, (p, m), (cp, cm), part.value)
+            case "voltage source" | "inductance":
+                p, m = rows
+                g_rows += [(p, branch, 1.0), (m, branch, -1.0), (branch, p, 1.0), (branch, m, -1.0)]
+                if part.kind == "inductance":
+                    c_rows.append((branch, branch, -part.value))
+                else:
+                    b[branch] = drive.get(fold(part.owner), part.amplitude)
+                branch += 1
+            case "current source":
+                p, m = rows
+                amplitude = drive.get(fold(part.owner), part.amplitude)
+                if p >= 0:
+                    b[p] -= amplitude
+                if m >= 0:
+                    b[m] += amplitude
+    return Network(
+        parts=parts,
+        port=port,
+        unknowns=(*nodes, *branches),
+        n_nodes=len(nodes),
+        conductance=_triplets(g_rows),
+        capacitance=_triplets(c_rows),
+        drive=b,
+        output=_selector(port, at, branches, n),
+    )
+
+
+def incidence(network: Network, plus: str, minus: str) -> NDArray[np.float64]:
+    """Give the (n,) vector d with dᵀx = v(plus) - v(minus)."""
+    d = np.zeros(network.size)
+    for node, sign in ((plus, 1.0), (minus, -1.0)):
+        row = network.index(node)
+        if row is not None:
+            d[row] += sign
+    return d
+
+
+def _stamp(rows: list[tuple[int, int, float]], out: tuple[int, int], control: tuple[int, int], value: float) -> None:
+    for row, row_sign in ((out[0], 1.0), (out[1], -1.0)):
+        for column, column_sign in ((control[0], 1.0), (control[1], -1.0)):
+            rows.append((row, column, row_sign * column_sign * value))
+
+
+def _triplets(rows: list[tuple[int, int, float]]) -> Triplets:
+    kept = [entry for entry in rows if entry[0] >= 0 and entry[1] >= 0]
+    return Triplets(
+        np.array([row for row, _, _ in kept], dtype=np.intp),
+        np.array([column for _, column, _ in kept], dtype=np.intp),
+        np.array([value for _, _, value in kept], dtype=float),
+    )
+
+
+def _selector(port: Port, at: Mapping[str, int], branches: list[str], n: int) -> NDArray[np.float64]:
+    e = np.zeros(n)
+    if port.kind == "current":
+        owners = [fold(name) for name in branches]
+        if fold(port.through) not in owners:
+            raise NetworkError(f"no branch current for {port}")
+        e[len(at) + owners.index(fold(port.through))] = 1.0
+        return e
+    for node, sign in ((port.plus, 1.0), (port.minus, -1.0)):
+        if node == GROUND:
+            continue
+        if node not in at:
+            raise NetworkError(f"no part touches the output node {node}")
+        e[at[node]] += sign
+    return e

@@ -1,0 +1,404 @@
+"""The Review record: the JSON document `tauledger.review/1`, field for field.
+
+Plain SI numbers; None where there is none; fixed order. `hand` is what an engineer would write on paper, `exact` is algebra on
+the rebuilt network, `simulated` is ngspice. `difference` is hz/simulated - 1 (against exact where nothing was simulated).
+`share`, `weight` and `effect` are fractions. Poles and zeros in Hz are s/2π. Frequencies of DC and of "no upper limit" in a plateau's
+extent are 0 and None. Renderers get this record and nothing else.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+SCHEMA = "tauledger.review/1"
+
+
+@dataclass(frozen=True, slots=True)
+class EngineFacts:
+    """Which engine answered."""
+
+    name: str
+    version: str
+
+
+@dataclass(frozen=True, slots=True)
+class NetlistFacts:
+    """The netlist: path as typed, title, SHA-256 of all files read in order, and what was read past, by word and count."""
+
+    path: str
+    title: str
+    sha256: str
+    read_past: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class DriveFacts:
+    """One driven source; resistance_ohm is the single resistor in series with it, None where there is no such one."""
+
+    source: str
+    kind: str
+    amplitude_real: float
+    amplitude_imag: float
+    resistance_ohm: float | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class LoadFacts:
+    """One passive from the output straight to ground: its name, kind (R, C, L) and value."""
+
+    name: str
+    kind: str
+    value: float
+
+
+@dataclass(frozen=True, slots=True)
+class OutputFacts:
+    """Where the response is taken. kind: voltage or current; plus and minus are nodes, through the source of a current."""
+
+    plus: str
+    minus: str
+    kind: str
+    through: str = ""
+    load: tuple[LoadFacts, ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class MidbandFacts:
+    """The reference of all band edges: the plateau of highest gain.
+
+    from_hz, to_hz: its extent, both None where there is no plateau; 0 where it reaches DC; `to_hz` None with `from_hz` set
+    where it has no upper limit. unit: V/V, ohm, S or A/A.
+    """
+
+    frequency_hz: float
+    from_hz: float | None
+    to_hz: float | None
+    gain_real: float
+    gain_imag: float
+    gain_db: float
+    unit: str
+
+
+@dataclass(frozen=True, slots=True)
+class AgreementFacts:
+    """Largest |ΔH| / max(|H|, 1e-6·|H_mid|) between the rebuilt network and ngspice's sweep, and where."""
+
+    max_relative_error: float
+    at_hz: float
+    points: int
+
+
+@dataclass(frozen=True, slots=True)
+class EdgeFacts:
+    """One band edge: first -3 dB crossing going outwards from mid-band.
+
+    slope: d ln|H| / d ln f there. phase_deg: phase beyond mid-band. peaking_db: above mid-band on this side. rise_time_s: 10-90 %, 0.35/f_H.
+    """
+
+    simulated_hz: float | None
+    exact_hz: float | None
+    hand_hz: float | None
+    difference: float | None
+    slope: float | None
+    phase_deg: float | None
+    peaking_db: float
+    peaking_at_hz: float | None = None
+    rise_time_s: float | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class Estimate:
+    """One method's answer for one edge ("f_high" or "f_low")."""
+
+    edge: str
+    method: str
+    hz: float | None
+    difference: float | None
+    recommended: bool = False
+
+
+@dataclass(frozen=True, slots=True)
+class Step:
+    """One step from paper to simulation: the estimate after it, the factor by which it moved, and why."""
+
+    edge: str
+    step: str
+    hz: float | None
+    factor: float | None
+    why: str
+
+
+@dataclass(frozen=True, slots=True)
+class EdgePair:
+    """One number for each band edge, None where the edge does not exist."""
+
+    f_high: float | None
+    f_low: float | None
+
+
+@dataclass(frozen=True, slots=True)
+class ResistanceTerm:
+    """One of the resistances in parallel at a node: a resistor's name or a looking-in phrase such as "into base of Q1"."""
+
+    name: str
+    ohm: float
+
+
+@dataclass(frozen=True, slots=True)
+class CapacitanceTerm:
+    """One capacitance at a node with its Miller factor: contributes farad·factor; gain_* is K from this node to its other end."""
+
+    part: str
+    farad: float
+    factor: float
+    gain_real: float
+    gain_imag: float
+
+
+@dataclass(frozen=True, slots=True)
+class Working:
+    """How the hand resistance and capacitance of a node came about.
+
+    source: rule, loop, branch or solved (the exact value, because no rule fits). loop_gain: T of the one-loop form, else None.
+    """
+
+    rule: str
+    text: str
+    resistances: tuple[ResistanceTerm, ...]
+    capacitances: tuple[CapacitanceTerm, ...]
+    loop_gain: float | None
+    source: str
+
+
+@dataclass(frozen=True, slots=True)
+class NodeRow:
+    """One signal node in the time-constant budget; `time_constant_s` is by hand, `time_constant_exact_s` is exact.
+
+    name: the netlist's node. title: as the trade says it, "base of Q1 (b)". per_farad: ∂f/∂C in Hz/F for capacitance to ground.
+    in_path: the row counts in the hand estimate.
+    """
+
+    name: str
+    title: str
+    members: tuple[str, ...]
+    role: str
+    in_path: bool
+    resistance_hand_ohm: float | None
+    resistance_exact_ohm: float | None
+    capacitance_f: float | None
+    time_constant_s: float | None
+    time_constant_exact_s: float | None
+    share: EdgePair
+    per_farad: EdgePair
+    working: Working | None
+
+
+@dataclass(frozen=True, slots=True)
+class TenPercent:
+    """Band edges recomputed with this part 10 % smaller, bias frozen."""
+
+    f_high_hz: float | None
+    f_low_hz: float | None
+
+
+@dataclass(frozen=True, slots=True)
+class PartRow:
+    """One capacitance, inductance or transcapacitance (four nodes: output pair, control pair).
+
+    klass is written as "class" in JSON: short, open, gain, tuned. edge_hz: 1/(2πRC) of a coupling or bypass capacitor;
+    zero_hz: the zero that it makes alone. time_constant_s = resistance_exact_ohm · value.
+    """
+
+    name: str
+    owner: str
+    kind: str
+    nodes: tuple[str, ...]
+    value: float
+    klass: str
+    in_path: bool
+    weight: float | None
+    resistance_hand_ohm: float | None
+    resistance_exact_ohm: float | None
+    time_constant_s: float | None
+    edge_hz: float | None
+    zero_hz: float | None
+    share: EdgePair
+    ten_percent_less: TenPercent
+
+
+@dataclass(frozen=True, slots=True)
+class UpperBudget:
+    """Sums over the upper network, in s: over all open parts, −Σ1/p, over the rows that count, weighted, and the phase slope."""
+
+    sum_s: float
+    inverse_pole_sum_s: float
+    path_sum_s: float | None
+    weighted_sum_s: float
+    group_delay_s: float
+
+
+@dataclass(frozen=True, slots=True)
+class LowerBudget:
+    """Sums over the lower network in Hz: short-circuit time constants, and −Σp/2π; None where an all-capacitor loop exists."""
+
+    sum_hz: float | None
+    pole_sum_hz: float | None
+
+
+@dataclass(frozen=True, slots=True)
+class Budget:
+    """Both time-constant budgets; None where the reference has no plateau."""
+
+    upper: UpperBudget | None
+    lower: LowerBudget | None
+
+
+@dataclass(frozen=True, slots=True)
+class Owner:
+    """A part that a pole depends on: d ln|p| / d ln(value), sign turned so that "owns all of it" is 1."""
+
+    part: str
+    share: float
+
+
+@dataclass(frozen=True, slots=True)
+class PoleFacts:
+    """One pole (of a complex pair the one above the axis). hand_hz: |p|/2π by the formula named in `hand_formula`.
+
+    effect: change of the band edge in per unit if the pole were absent (None where it is not near the band). hidden: cancelled by a zero.
+    f0_hz, q: of a complex pair.
+    """
+
+    real_hz: float
+    imag_hz: float
+    hand_hz: float | None
+    hand_formula: str
+    effect: float | None
+    owners: tuple[Owner, ...]
+    cancelled: bool = False
+    f0_hz: float | None = None
+    q: float | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class ZeroFacts:
+    """One zero in Hz (of a complex pair the one above the axis)."""
+
+    real_hz: float
+    imag_hz: float
+    cancelled: bool = False
+
+
+@dataclass(frozen=True, slots=True)
+class Stage:
+    """One node that all signal crosses, in signal order, with the gain from the one before it."""
+
+    node: str
+    role: str
+    owner: str
+    gain_hand: float | None
+    gain_exact: float | None
+    elements: tuple[str, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Figure:
+    """One figure of a device's operating point: trade symbol (i_c, v_ce, gm, r_pi, r_o, c_pi, c_mu, f_t), value, unit."""
+
+    symbol: str
+    value: float
+    unit: str
+
+
+@dataclass(frozen=True, slots=True)
+class DeviceFacts:
+    """One device at its operating point."""
+
+    name: str
+    kind: str
+    region: str
+    figures: tuple[Figure, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Curves:
+    """Responses over frequency as magnitude in dB and phase in degrees (unwrapped); None where a source is missing."""
+
+    frequency_hz: tuple[float, ...]
+    simulated_db: tuple[float, ...] | None
+    simulated_deg: tuple[float, ...] | None
+    exact_db: tuple[float, ...] | None
+    exact_deg: tuple[float, ...] | None
+    hand_db: tuple[float, ...] | None
+    hand_deg: tuple[float, ...] | None
+
+
+@dataclass(frozen=True, slots=True)
+class SourceLine:
+    """A line of the netlist that the review refers to."""
+
+    file: str
+    line: int
+    text: str
+
+
+@dataclass(frozen=True, slots=True)
+class NamedNumber:
+    """A number with its name and unit."""
+
+    name: str
+    value: float
+    unit: str
+
+
+@dataclass(frozen=True, slots=True)
+class CauseFacts:
+    """Why hand and simulation differ. cause: fixed id. effect: fraction by which it moves `quantity`. says, instead: sentences."""
+
+    cause: str
+    quantity: str
+    effect: float
+    where: str
+    says: str
+    instead: str
+    numbers: tuple[NamedNumber, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class NoteFacts:
+    """What the reader must know about the numbers. note: fixed id."""
+
+    note: str
+    where: str
+    says: str
+
+
+@dataclass(frozen=True, slots=True)
+class Review:
+    """One review of one netlist under one condition."""
+
+    schema: str
+    tauledger: str
+    engine: EngineFacts | None
+    netlist: NetlistFacts
+    temperature_c: float
+    drive: tuple[DriveFacts, ...]
+    output: OutputFacts
+    midband: MidbandFacts
+    agreement: AgreementFacts | None
+    f_high: EdgeFacts | None
+    f_low: EdgeFacts | None
+    estimates: tuple[Estimate, ...]
+    steps: tuple[Step, ...]
+    nodes: tuple[NodeRow, ...]
+    parts: tuple[PartRow, ...]
+    budget: Budget
+    poles: tuple[PoleFacts, ...]
+    zeros: tuple[ZeroFacts, ...]
+    stages: tuple[Stage, ...]
+    devices: tuple[DeviceFacts, ...]
+    curves: Curves | None
+    lines: tuple[SourceLine, ...]
+    causes: tuple[CauseFacts, ...]
+    notes: tuple[NoteFacts, ...]
+    cautions: tuple[str, ...] = ()
