@@ -85,7 +85,8 @@ class Element:
     """One element that is not a plain R, C or L.
 
     letter: element letter in upper case. nodes: node numbers in the order of the card. model: name of the model
-    or empty. parameters: (name, value) pairs in SI units, names folded; a V or I source has dc, acmag, acphase (degrees).
+    or empty. parameters: (name, value) pairs in SI units, names folded; a V or I source has dc, acmag, acphase
+    (degrees).
     """
 
     letter: str
@@ -131,7 +132,8 @@ class Load:
 class Change:
     """How a circuit differs from its netlist: the one record behind every option and condition.
 
-    temperature_c: analysis temperature in °C, or None. parameters: global `.param` values. elements: values of R, C, L
+    temperature_c: analysis temperature in °C, or None. parameters: global `.param` values. elements: values of
+    R, C, L
     (or the dc value of V, I; the gain of G) by flat name. models: (model, parameter, value). loads: added parts.
     Names are compared folded.
     """
@@ -151,7 +153,8 @@ class Circuit:
     """The flat circuit for operating point and AC: what the engine is given and the network is rebuilt from.
 
     nodes: node names by number; nodes[0] is "0". drive: the sources that are driven, with complex amplitude.
-    temperature_c, tnom_c: analysis and nominal temperature in °C. options: (name, value) of those options that change
+    temperature_c, tnom_c: analysis and nominal temperature in °C. options: (name, value) of those options that
+    change
     the result (gmin). models: by flat name.
     """
 

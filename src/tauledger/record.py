@@ -1,8 +1,11 @@
 """The Review record: the JSON document `tauledger.review/1`, field for field.
 
-Plain SI numbers; None where there is none; fixed order. `hand` is what an engineer would write on paper, `exact` is algebra on
-the rebuilt network, `simulated` is ngspice. `difference` is hz/simulated - 1 (against exact where nothing was simulated).
-`share`, `weight` and `effect` are fractions. Poles and zeros in Hz are s/2π. Frequencies of DC and of "no upper limit" in a plateau's
+Plain SI numbers; None where there is none; fixed order. `hand` is what an engineer would write on paper, `exact`
+is algebra on
+the rebuilt network, `simulated` is ngspice. `difference` is hz/simulated - 1 (against exact where nothing was
+simulated).
+`share`, `weight` and `effect` are fractions. Poles and zeros in Hz are s/2π. Frequencies of DC and of "no upper
+limit" in a plateau's
 extent are 0 and None. Renderers get this record and nothing else.
 """
 
@@ -23,7 +26,8 @@ class EngineFacts:
 
 @dataclass(frozen=True, slots=True)
 class NetlistFacts:
-    """The netlist: path as typed, title, SHA-256 of all files read in order, and what was read past, by word and count."""
+    """The netlist: path as typed, title, SHA-256 of all files read in order, and what was read past, by word and
+    count."""
 
     path: str
     title: str
@@ -33,7 +37,8 @@ class NetlistFacts:
 
 @dataclass(frozen=True, slots=True)
 class DriveFacts:
-    """One driven source; resistance_ohm is the single resistor in series with it, None where there is no such one."""
+    """One driven source; resistance_ohm is the single resistor in series with it, None where there is no such
+    one."""
 
     source: str
     kind: str
@@ -53,7 +58,8 @@ class LoadFacts:
 
 @dataclass(frozen=True, slots=True)
 class OutputFacts:
-    """Where the response is taken. kind: voltage or current; plus and minus are nodes, through the source of a current."""
+    """Where the response is taken. kind: voltage or current; plus and minus are nodes, through the source of a
+    current."""
 
     plus: str
     minus: str
@@ -66,7 +72,8 @@ class OutputFacts:
 class MidbandFacts:
     """The reference of all band edges: the plateau of highest gain.
 
-    from_hz, to_hz: its extent, both None where there is no plateau; 0 where it reaches DC; `to_hz` None with `from_hz` set
+    from_hz, to_hz: its extent, both None where there is no plateau; 0 where it reaches DC; `to_hz` None with
+    `from_hz` set
     where it has no upper limit. unit: V/V, ohm, S or A/A.
     """
 
@@ -92,7 +99,8 @@ class AgreementFacts:
 class EdgeFacts:
     """One band edge: first -3 dB crossing going outwards from mid-band.
 
-    slope: d ln|H| / d ln f there. phase_deg: phase beyond mid-band. peaking_db: above mid-band on this side. rise_time_s: 10-90 %, 0.35/f_H.
+    slope: d ln|H| / d ln f there. phase_deg: phase beyond mid-band. peaking_db: above mid-band on this side.
+    rise_time_s: 10-90 %, 0.35/f_H.
     """
 
     simulated_hz: float | None
@@ -138,7 +146,8 @@ class EdgePair:
 
 @dataclass(frozen=True, slots=True)
 class ResistanceTerm:
-    """One of the resistances in parallel at a node: a resistor's name or a looking-in phrase such as "into base of Q1"."""
+    """One of the resistances in parallel at a node: a resistor's name or a looking-in phrase such as "into base
+    of Q1"."""
 
     name: str
     ohm: float
@@ -146,7 +155,8 @@ class ResistanceTerm:
 
 @dataclass(frozen=True, slots=True)
 class CapacitanceTerm:
-    """One capacitance at a node with its Miller factor: contributes farad·factor; gain_* is K from this node to its other end."""
+    """One capacitance at a node with its Miller factor: contributes farad·factor; gain_* is K from this node to
+    its other end."""
 
     part: str
     farad: float
@@ -159,7 +169,8 @@ class CapacitanceTerm:
 class Working:
     """How the hand resistance and capacitance of a node came about.
 
-    source: rule, loop, branch or solved (the exact value, because no rule fits). loop_gain: T of the one-loop form, else None.
+    source: rule, loop, branch or solved (the exact value, because no rule fits). loop_gain: T of the one-loop
+    form, else None.
     """
 
     rule: str
@@ -174,7 +185,8 @@ class Working:
 class NodeRow:
     """One signal node in the time-constant budget; `time_constant_s` is by hand, `time_constant_exact_s` is exact.
 
-    name: the netlist's node. title: as the trade says it, "base of Q1 (b)". per_farad: ∂f/∂C in Hz/F for capacitance to ground.
+    name: the netlist's node. title: as the trade says it, "base of Q1 (b)". per_farad: ∂f/∂C in Hz/F for
+    capacitance to ground.
     in_path: the row counts in the hand estimate.
     """
 
@@ -205,7 +217,8 @@ class TenPercent:
 class PartRow:
     """One capacitance, inductance or transcapacitance (four nodes: output pair, control pair).
 
-    klass is written as "class" in JSON: short, open, gain, tuned. edge_hz: 1/(2πRC) of a coupling or bypass capacitor;
+    klass is written as "class" in JSON: short, open, gain, tuned. edge_hz: 1/(2πRC) of a coupling or bypass
+    capacitor;
     zero_hz: the zero that it makes alone. time_constant_s = resistance_exact_ohm · value.
     """
 
@@ -228,7 +241,8 @@ class PartRow:
 
 @dataclass(frozen=True, slots=True)
 class UpperBudget:
-    """Sums over the upper network, in s: over all open parts, −Σ1/p, over the rows that count, weighted, and the phase slope."""
+    """Sums over the upper network, in s: over all open parts, −Σ1/p, over the rows that count, weighted, and the
+    phase slope."""
 
     sum_s: float
     inverse_pole_sum_s: float
@@ -239,7 +253,8 @@ class UpperBudget:
 
 @dataclass(frozen=True, slots=True)
 class LowerBudget:
-    """Sums over the lower network in Hz: short-circuit time constants, and −Σp/2π; None where an all-capacitor loop exists."""
+    """Sums over the lower network in Hz: short-circuit time constants, and −Σp/2π; None where an all-capacitor
+    loop exists."""
 
     sum_hz: float | None
     pole_sum_hz: float | None
@@ -265,7 +280,8 @@ class Owner:
 class PoleFacts:
     """One pole (of a complex pair the one above the axis). hand_hz: |p|/2π by the formula named in `hand_formula`.
 
-    effect: change of the band edge in per unit if the pole were absent (None where it is not near the band). hidden: cancelled by a zero.
+    effect: change of the band edge in per unit if the pole were absent (None where it is not near the band).
+    hidden: cancelled by a zero.
     f0_hz, q: of a complex pair.
     """
 
@@ -303,7 +319,8 @@ class Stage:
 
 @dataclass(frozen=True, slots=True)
 class Figure:
-    """One figure of a device's operating point: trade symbol (i_c, v_ce, gm, r_pi, r_o, c_pi, c_mu, f_t), value, unit."""
+    """One figure of a device's operating point: trade symbol (i_c, v_ce, gm, r_pi, r_o, c_pi, c_mu, f_t), value,
+    unit."""
 
     symbol: str
     value: float
@@ -322,7 +339,8 @@ class DeviceFacts:
 
 @dataclass(frozen=True, slots=True)
 class Curves:
-    """Responses over frequency as magnitude in dB and phase in degrees (unwrapped); None where a source is missing."""
+    """Responses over frequency as magnitude in dB and phase in degrees (unwrapped); None where a source is
+    missing."""
 
     frequency_hz: tuple[float, ...]
     simulated_db: tuple[float, ...] | None
@@ -353,7 +371,8 @@ class NamedNumber:
 
 @dataclass(frozen=True, slots=True)
 class CauseFacts:
-    """Why hand and simulation differ. cause: fixed id. effect: fraction by which it moves `quantity`. says, instead: sentences."""
+    """Why hand and simulation differ. cause: fixed id. effect: fraction by which it moves `quantity`. says,
+    instead: sentences."""
 
     cause: str
     quantity: str

@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass
-from typing import Mapping
 
 import numpy as np
 from numpy.typing import NDArray
@@ -29,9 +29,11 @@ class EngineIdentity:
 class Bias:
     """The operating point.
 
-    voltages: of every node in the circuit's order, V (n_nodes,). currents: through each voltage source and inductor, A,
+    voltages: of every node in the circuit's order, V (n_nodes,). currents: through each voltage source and
+    inductor, A,
     by element name, positive into the first node. readings: per element, by reading name, SI units.
-    stepped: the engine needed gmin or source stepping. warnings: the engine's lines worth telling, with the user's names.
+    stepped: the engine needed gmin or source stepping. warnings: the engine's lines worth telling, with the
+    user's names.
     """
 
     voltages: NDArray[np.float64]

@@ -1,6 +1,7 @@
 """The contract of a device family: what it is called, what to observe, and its small-signal parts.
 
-A family knows what ngspice calls a thing, not how to ask for it. It gives labelled parts, a hand model (`Transconductor`)
+A family knows what ngspice calls a thing, not how to ask for it. It gives labelled parts, a hand model
+(`Transconductor`)
 and the figures of its operating point; nothing downstream knows which family a part came from.
 """
 
@@ -36,7 +37,8 @@ class Transconductor:
 
 @dataclass(frozen=True, slots=True)
 class Terminal:
-    """One terminal of a device: its word ("base"), the netlist's node, and the inner node behind its series resistance.
+    """One terminal of a device: its word ("base"), the netlist's node, and the inner node behind its series
+    resistance.
 
     inner equals outer where there is no series resistance.
     """
@@ -51,7 +53,8 @@ class Device:
     """One transistor (or diode) as linearised at its operating point.
 
     kind: "npn", "pnp", … region: in whole words ("active", "saturated", "off", "reversed").
-    figures: (symbol, value in SI units) in the order in which a table shows them: i_c, v_ce, gm, r_pi, r_o, c_pi, c_mu, f_t.
+    figures: (symbol, value in SI units) in the order in which a table shows them: i_c, v_ce, gm, r_pi, r_o,
+    c_pi, c_mu, f_t.
     without_charge: the model gives this device no capacitance at all.
     """
 
@@ -67,7 +70,8 @@ class Device:
 
 @dataclass(frozen=True, slots=True)
 class Refusal:
-    """Why an element or its model cannot be rebuilt, and what would help; `parameter` names the culprit on the model card."""
+    """Why an element or its model cannot be rebuilt, and what would help; `parameter` names the culprit on the
+    model card."""
 
     parameter: str
     reason: str
@@ -78,9 +82,12 @@ class Refusal:
 class Family:
     """One device family, as its file in devices/ describes it.
 
-    letter: element letter. model_types: types of `.model` that belong to it, e.g. ("npn", "pnp"), empty without model.
-    levels: model levels it knows. terminals: words in card order, optional ones last. optional_terminals: how many of those
-    may be missing. instance_parameters, model_parameters: names (folded) that ngspice accepts on the card and on the model.
+    letter: element letter. model_types: types of `.model` that belong to it, e.g. ("npn", "pnp"), empty without
+    model.
+    levels: model levels it knows. terminals: words in card order, optional ones last. optional_terminals: how
+    many of those
+    may be missing. instance_parameters, model_parameters: names (folded) that ngspice accepts on the card and on
+    the model.
     observe: what to read from the engine, or None for nothing. linearise: element at its bias → parts and figures.
     refuse: a Refusal where this element or model cannot be rebuilt, else None.
     """
@@ -100,14 +107,16 @@ class Family:
 
 @dataclass(frozen=True, slots=True)
 class Linearised:
-    """The whole circuit linearised at its operating point: every part of the network, and the devices among them."""
+    """The whole circuit linearised at its operating point: every part of the network, and the devices among
+    them."""
 
     parts: tuple[Part, ...]
     devices: tuple[Device, ...]
 
 
 def inner_node(owner: str, terminal: str) -> str:
-    """Name the node behind a series resistance; the quote cannot stand in a netlist's node name, so it never collides."""
+    """Name the node behind a series resistance; the quote cannot stand in a netlist's node name, so it never
+    collides."""
     return f"{owner}'{terminal}"
 
 

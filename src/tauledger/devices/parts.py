@@ -1,7 +1,9 @@
 """Labelled primitives of the small-signal network: the one currency of everything downstream.
 
-Signs. Conductance, capacitance and inductance stand between nodes (a, b). A transconductance or transcapacitance has
-nodes (out_plus, out_minus, control_plus, control_minus) and carries the current value·v(control) resp. value·dv(control)/dt
+Signs. Conductance, capacitance and inductance stand between nodes (a, b). A transconductance or transcapacitance
+has
+nodes (out_plus, out_minus, control_plus, control_minus) and carries the current value·v(control) resp.
+value·dv(control)/dt
 from out_plus through itself to out_minus, like a SPICE G element. A voltage source forces v(a) - v(b); its branch
 current flows from a through the source to b. A current source pushes its current from a through itself to b.
 """
@@ -24,7 +26,8 @@ PartKind = Literal[
 
 @dataclass(frozen=True, slots=True)
 class Part:
-    """One primitive: who it belongs to ("Q1"), what it is there ("c_mu", empty for a plain card), where and how much.
+    """One primitive: who it belongs to ("Q1"), what it is there ("c_mu", empty for a plain card), where and how
+    much.
 
     nodes: two names, or four for the controlled kinds. value: S, F, H, S, F; for sources 0.
     amplitude: complex drive in V or A, of sources only.
@@ -63,7 +66,9 @@ def inductance(owner: str, a: str, b: str, henry: float, label: str = "") -> Par
     return Part("inductance", owner, label, (a, b), henry)
 
 
-def transconductance(owner: str, out: tuple[str, str], control: tuple[str, str], siemens: float, label: str = "") -> Part:
+def transconductance(
+    owner: str, out: tuple[str, str], control: tuple[str, str], siemens: float, label: str = ""
+) -> Part:
     """A current siemens·v(control) from out[0] through the part to out[1]."""
     return Part("transconductance", owner, label, (*out, *control), siemens)
 

@@ -1,10 +1,12 @@
 """Parts → the matrices of the small-signal network, by modified nodal analysis.
 
-Y(s) = G + s·C acts on the unknowns x = (node voltages, branch currents); Y x = b is the forward problem with the drive b,
+Y(s) = G + s·C acts on the unknowns x = (node voltages, branch currents); Y x = b is the forward problem with the
+drive b,
 Yᵀ λ = e the adjoint problem with the output e, and H = eᵀ x = λᵀ b.
 Branch unknowns belong to voltage sources (v_a - v_b = V) and inductors (v_a - v_b - s·L·i = 0).
 
-Source: Ho, Ruehli and Brennan, "The modified nodal approach to network analysis", IEEE Trans. Circuits Syst. CAS-22(6), 1975.
+Source: Ho, Ruehli and Brennan, "The modified nodal approach to network analysis", IEEE Trans. Circuits Syst.
+CAS-22(6), 1975.
 """
 
 from __future__ import annotations
@@ -39,7 +41,8 @@ class Triplets:
 class Network:
     """The assembled small-signal network.
 
-    parts: what it was built from. unknowns: node names, then the owners of the branch currents. n_nodes: how many are nodes.
+    parts: what it was built from. unknowns: node names, then the owners of the branch currents. n_nodes: how
+    many are nodes.
     conductance G and capacitance C: triplets of order n. drive b: (n,) complex, V or A. output e: (n,) real.
     """
 

@@ -40,9 +40,12 @@ def solve(network: Network, s: Complex) -> Solution:
     y = admittance(network, s)
     try:
         x = np.linalg.solve(y, np.broadcast_to(network.drive, (len(s), network.size))[..., None])[..., 0]
-        adjoint = np.linalg.solve(y.transpose(0, 2, 1), np.broadcast_to(network.output.astype(complex), x.shape)[..., None])[..., 0]
+        adjoint = np.linalg.solve(
+            y.transpose(0, 2, 1), np.broadcast_to(network.output.astype(complex), x.shape)[..., None]
+        )[..., 0]
     except np.linalg.LinAlgError as error:
         raise NetworkError("the small-signal network has no unique solution") from error
+    x, adjoint = x.astype(complex, copy=False), adjoint.astype(complex, copy=False)
     return Solution(s, x, adjoint, x @ network.output)
 
 
@@ -52,7 +55,9 @@ def response(network: Network, frequency_hz: NDArray[np.float64]) -> Complex:
     if network.size > DENSE_LIMIT:
         return _solve_sparse(network, s, adjoint=False).response
     try:
-        x = np.linalg.solve(admittance(network, s), np.broadcast_to(network.drive, (len(s), network.size))[..., None])[..., 0]
+        x = np.linalg.solve(admittance(network, s), np.broadcast_to(network.drive, (len(s), network.size))[..., None])[
+            ..., 0
+        ]
     except np.linalg.LinAlgError as error:
         raise NetworkError("the small-signal network has no unique solution") from error
     return x @ network.output
@@ -81,5 +86,5 @@ def _solve_sparse(network: Network, s: Complex, *, adjoint: bool = True) -> Solu
             raise NetworkError("the small-signal network has no unique solution") from error
         x[k] = factor.solve(network.drive)
         if adjoint:
-            lam[k] = factor.solve(network.output.astype(complex), trans="T")
-    return Solution(s, x, lam, x @ network.output)
+            lam[k] = factor.solve(network.output.astype(complex), "T")
+    return Solution(s, x, lam, (x @ network.output).astype(complex))

@@ -1,0 +1,172 @@
+"""What the hand analysis gives: signal nodes with their working, time constants, steps and methods."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+from typing import Literal
+
+WorkingSource = Literal["rule", "loop", "branch", "solved"]
+Edge = Literal["f_high", "f_low"]
+
+
+@dataclass(frozen=True, slots=True)
+class Resistance:
+    """One of the resistances in parallel: a part's name ("RC") or a looking-in phrase ("into base of Q1"), in
+    ohm."""
+
+    name: str
+    ohm: float
+
+
+@dataclass(frozen=True, slots=True)
+class MillerTerm:
+    """One capacitance at a node: it counts as farad·factor there; `gain` is K from this node to its other end."""
+
+    part: str
+    farad: float
+    factor: float
+    gain: complex
+
+
+@dataclass(frozen=True, slots=True)
+class LookingIn:
+    """A driving-point resistance by hand, worked.
+
+    ohm: the value used. rule: name of the rule or form. text: the line as written on paper. source: where `ohm`
+    comes from.
+    loop_gain: T of the one-loop form. rule_ohm: what the plain rule gives where it was not accepted.
+    """
+
+    ohm: float
+    rule: str
+    text: str
+    resistances: tuple[Resistance, ...]
+    source: WorkingSource
+    loop_gain: float | None = None
+    rule_ohm: float | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class InnerLine:
+    """One netlist or inner node of a signal node's row: its own looking-in resistance, Miller terms and exact
+    values."""
+
+    node: str
+    resistance: LookingIn
+    resistance_exact_ohm: float
+    capacitances: tuple[MillerTerm, ...]
+    capacitance_f: float
+    time_constant_s: float
+    time_constant_exact_s: float
+
+
+@dataclass(frozen=True, slots=True)
+class SignalNode:
+    """One row of the upper budget: nodes joined by mid-band shorts, with the devices' inner nodes folded in.
+
+    name: the netlist's node (unique; "(inside Q2)" appended where two rows would share one). title: "base of Q1
+    (b)".
+    role: what the node is ("base", "collector", "output", …). members: all network nodes in it, inner ones
+    included.
+    crossing: ρ = x·λ/(Z_nn·H), the relative gain lost if the node is shorted. moment: its signed fraction of b1
+    − a1.
+    in_path: the row counts. lines: one per node that carries capacitance, the dominant one first.
+    resistance_hand_ohm, resistance_exact_ohm: of the dominant node. time_constant_s (hand) and
+    time_constant_exact_s: sums.
+    capacitance_f = time_constant_s / resistance_hand_ohm.
+    """
+
+    name: str
+    title: str
+    role: str
+    owner: str
+    members: tuple[str, ...]
+    crossing: float
+    moment: float
+    in_path: bool
+    lines: tuple[InnerLine, ...]
+    resistance_hand_ohm: float
+    resistance_exact_ohm: float
+    capacitance_f: float
+    time_constant_s: float
+    time_constant_exact_s: float
+
+
+@dataclass(frozen=True, slots=True)
+class LowerRow:
+    """One coupling or bypass capacitor (parallel ones taken together): hand and exact resistance, edge and zero,
+    Hz.
+
+    parts: names of the capacitors taken together. in_path: counts in the hand estimate.
+    zero_hz: f_k·H(open)/H(short), the zero it makes alone with the other shorts shorted; 0 for a coupling
+    capacitor.
+    """
+
+    parts: tuple[str, ...]
+    title: str
+    farad: float
+    resistance: LookingIn
+    resistance_exact_ohm: float
+    edge_hand_hz: float
+    edge_exact_hz: float
+    zero_hz: float
+    in_path: bool
+
+
+@dataclass(frozen=True, slots=True)
+class StageRow:
+    """One node that all signal crosses, in signal order, with hand and exact gain from the one before."""
+
+    node: str
+    title: str
+    role: str
+    owner: str
+    gain_hand: float | None
+    gain_exact: float | None
+    elements: tuple[str, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class StepEstimate:
+    """The estimate of one edge after one step of the way from paper to the full network; hz is None where there
+    is no crossing.
+
+    step: fixed id (lowest, all-nodes, exact-constants, two-coefficients, all-poles, zeros, full). why: reason in
+    words.
+    """
+
+    edge: Edge
+    step: str
+    hz: float | None
+    why: str
+
+
+@dataclass(frozen=True, slots=True)
+class MethodEstimate:
+    """One classical method's answer for one edge, e.g. "sum of time constants"."""
+
+    edge: Edge
+    method: str
+    hz: float | None
+    recommended: bool = False
+
+
+@dataclass(frozen=True, slots=True)
+class HandEstimate:
+    """All of the hand side.
+
+    part_resistance: hand resistance across each open capacitance, by part name. sigma: b2 / Σ τ_i τ_j over the
+    rows that count.
+    hand_f_high_hz, hand_f_low_hz: the classical answers: lowest signal node alone, highest capacitor alone.
+    """
+
+    nodes: tuple[SignalNode, ...]
+    lower: tuple[LowerRow, ...]
+    stages: tuple[StageRow, ...]
+    part_resistance: Mapping[str, LookingIn]
+    steps: tuple[StepEstimate, ...]
+    methods: tuple[MethodEstimate, ...]
+    sigma: float | None
+    hand_f_high_hz: float | None
+    hand_f_low_hz: float | None
