@@ -123,3 +123,18 @@ def inner_node(owner: str, terminal: str) -> str:
 def readings_of(bias: Bias, element: Element) -> Mapping[str, float]:
     """Give the readings of one element, by ngspice's parameter name."""
     return bias.readings[element.name]
+
+
+def names(text: str) -> frozenset[str]:
+    """Give the set of parameter names in a blank-separated list."""
+    return frozenset(text.split())
+
+
+def observe_nothing(_element: Element) -> Observation | None:
+    """The `observe` of a family whose parts follow from the card alone."""
+    return None
+
+
+def never_refused(_element: Element, _model: Model | None) -> Refusal | None:
+    """The `refuse` of a family that is always rebuilt exactly."""
+    return None
