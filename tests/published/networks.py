@@ -140,28 +140,6 @@ def source_follower() -> Network:
     )
 
 
-def cascode() -> Network:
-    """A MOS cascode with finite r_o, 8th-edition Sedra and Smith style practice values: r_o 100 kohm, R_L 50 kohm."""
-    return network(
-        resistance("Rsig", "s", "g", 5 * KILO),
-        transistor("M1", ("g", "x", "0"), 2 * MILLI, r_o=100 * KILO, c_pi=100 * FEMTO, c_mu=30 * FEMTO),
-        capacitance("Cx", "x", "0", 120 * FEMTO),
-        transistor("M2", ("0", "out", "x"), 2 * MILLI, r_o=100 * KILO),
-        resistance("RL", "out", "0", 50 * KILO),
-        capacitance("Cout", "out", "0", 80 * FEMTO),
-    )
-
-
-def common_source_with_load() -> Network:
-    """A common source with C_L = 50 fF, Sedra and Smith style practice values: R_sig 5 kohm, R_L' 20 kohm, g_m 2 mA/V."""
-    return network(
-        resistance("Rsig", "s", "g", 5 * KILO),
-        transistor("M1", ("g", "out", "0"), 2 * MILLI, c_pi=100 * FEMTO, c_mu=30 * FEMTO),
-        resistance("RL", "out", "0", 20 * KILO),
-        capacitance("CL", "out", "0", 50 * FEMTO),
-    )
-
-
 def compensated_stage() -> Network:
     """Gray, Hurst, Lewis and Meyer, 5th ed. (2009), sec. 7.3.6 example, Fig. 7.35: C_f 20 pF around g_m 3 mA/V."""
     return network(
