@@ -44,6 +44,7 @@ class Network:
     parts: what it was built from. unknowns: node names, then the owners of the branch currents. n_nodes: how
     many are nodes.
     conductance G and capacitance C: triplets of order n. drive b: (n,) complex, V or A. output e: (n,) real.
+    amplitudes: complex amplitude of every source by its folded name, V or A.
     """
 
     parts: tuple[Part, ...]
@@ -54,6 +55,7 @@ class Network:
     capacitance: Triplets
     drive: NDArray[np.complex128]
     output: NDArray[np.float64]
+    amplitudes: Mapping[str, complex]
 
     @classmethod
     def from_parts(cls, parts: Iterable[Part], *, output: Port, drive: Mapping[str, complex] | None = None) -> Network:
@@ -77,6 +79,10 @@ class Network:
         """Give the row of the branch current of a voltage source or inductor."""
         return self.n_nodes + [fold(name) for name in self.unknowns[self.n_nodes :]].index(fold(owner))
 
+    def amplitude(self, source: Part) -> complex:
+        """Give the complex amplitude in V or A with which a source of this network is driven."""
+        return self.amplitudes[fold(source.owner)]
+
     def part(self, name: str) -> Part:
         """Give the part with this name ("CL", "Q1.c_mu"); KeyError where there is none."""
         for part in self.parts:
@@ -88,8 +94,12 @@ class Network:
 def assemble(parts: tuple[Part, ...], port: Port, drive: Mapping[str, complex]) -> Network:
     """Stamp every part; `drive` overrides the amplitudes of the sources it names (folded).
 
-    Raises NetworkError where the output names a node or branch that no part touches.
+    Raises NetworkError where the output names a node or branch that no part touches, or where two parts share a name.
     """
+    names = [part.name for part in parts]
+    if len(set(names)) < len(names):
+        twice = sorted({name for name in names if names.count(name) > 1})
+        raise NetworkError(f"two parts of one name: {', '.join(twice)}")
     nodes = list(dict.fromkeys(node for part in parts for node in part.nodes if node != GROUND))
     branches = [part.owner for part in parts if part.kind in ("voltage source", "inductance")]
     at: dict[str, int] = {node: row for row, node in enumerate(nodes)}
@@ -98,6 +108,11 @@ def assemble(parts: tuple[Part, ...], port: Port, drive: Mapping[str, complex]) 
     c_rows: list[tuple[int, int, float]] = []
     b = np.zeros(n, dtype=complex)
     branch = len(nodes)
+    amplitudes = {
+        fold(part.owner): complex(drive.get(fold(part.owner), part.amplitude))
+        for part in parts
+        if part.kind in ("voltage source", "current source")
+    }
     for part in parts:
         rows = [at.get(node, -1) for node in part.nodes]
         match part.kind:
@@ -113,11 +128,11 @@ def assemble(parts: tuple[Part, ...], port: Port, drive: Mapping[str, complex]) 
                 if part.kind == "inductance":
                     c_rows.append((branch, branch, -part.value))
                 else:
-                    b[branch] = drive.get(fold(part.owner), part.amplitude)
+                    b[branch] = amplitudes[fold(part.owner)]
                 branch += 1
             case "current source":
                 p, m = rows
-                amplitude = drive.get(fold(part.owner), part.amplitude)
+                amplitude = amplitudes[fold(part.owner)]
                 if p >= 0:
                     b[p] -= amplitude
                 if m >= 0:
@@ -131,6 +146,7 @@ def assemble(parts: tuple[Part, ...], port: Port, drive: Mapping[str, complex]) 
         capacitance=_triplets(c_rows),
         drive=b,
         output=_selector(port, at, branches, n),
+        amplitudes=amplitudes,
     )
 
 

@@ -1,34 +1,28 @@
-"""Mid-band, and what each capacitor and inductor does there: the whole, the upper and the lower network."""
+"""What each capacitor and inductor does at mid-band: the whole, the upper and the lower network."""
 
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Literal
 
-from tauledger.network.assemble import Network
+import numpy as np
+
+from tauledger.circuit import GROUND, Port, fold
+from tauledger.devices.parts import Part
+from tauledger.errors import NetworkError
+from tauledger.network.assemble import Network, assemble, incidence
+from tauledger.network.midband import MidBand as MidBand
+from tauledger.network.midband import find_midband as find_midband
+from tauledger.network.solve import Complex, Real, admittance, response
+from tauledger.network.spectrum import pole_frequencies
 
 BandClass = Literal["short", "open", "tuned"]
 
-
-@dataclass(frozen=True, slots=True)
-class MidBand:
-    """The reference of all band edges.
-
-    frequency_hz: 0 where the plateau reaches DC. from_hz, to_hz: the plateau's extent, 0 at DC, inf without
-    upper limit,
-    both None where there is no plateau. gain: complex H there.
-    """
-
-    frequency_hz: float
-    from_hz: float | None
-    to_hz: float | None
-    gain: complex
-
-    @property
-    def plateau(self) -> bool:
-        """Whether the reference lies on a plateau; else it is the maximum of |H|."""
-        return self.from_hz is not None
+SHORT_ABOVE = 1.0 / np.sqrt(2.0)
+TUNED_ABOVE = 1.3
+GAIN_TOLERANCE = 0.02
+BEYOND_ALL_POLES = 1e4
 
 
 @dataclass(frozen=True, slots=True)
@@ -36,11 +30,13 @@ class Bands:
     """The network seen from mid-band.
 
     class_of: "short", "open" or "tuned" by part name, for every capacitance, transcapacitance and inductance.
-    ratio: the r of the rule that decided, by part name. merged: every node of the network → its node in `upper`
-    (nodes joined by short capacitors share one; "0" wins).
+    ratio: the r of the rule that decided, by part name, for every capacitance and inductance (0 at DC).
+    repaired: capacitors shorted against the rule because only that restores the gain.
+    merged: every node of the network → its node in `upper` (nodes joined by short capacitors share one; "0" wins).
     upper: short capacitors merged, open inductors taken out; at s = 0 it is the mid-band network.
     lower: open capacitors taken out, short inductors merged; for s → ∞ it is the mid-band network.
-    sound: the real gain of the mid-band network is within 2 % of |H(f_mid)|; where not, no hand numbers.
+    sound: the real gain of the mid-band network is within 2 % of |H(f_mid)|; where not, no hand numbers, and where
+    the merged network cannot even be built, upper and lower are the whole network.
     """
 
     network: Network
@@ -51,3 +47,184 @@ class Bands:
     upper: Network
     lower: Network
     sound: bool
+    repaired: tuple[str, ...] = ()
+
+
+def classify(network: Network, midband: MidBand) -> Bands:
+    """Decide for every capacitor and inductor whether it is a short or an open at mid-band, and build both networks.
+
+    A capacitor is short where r = |jω·Z(jω)| / lim s·Z(s) > 0.707, Z being the impedance across it with the capacitor
+    itself in place: for one resistance across it r = x/√(1 + x²) with x = ωRC, and capacitors in parallel share one r.
+    An inductor is open where the dual with the admittance of its branch exceeds 0.707. r > 1.3 is resonance: tuned.
+    The gain of the merged network is then compared with |H(f_mid)|; while it is more than 2 % off, the open capacitor
+    is shorted that halves the error at least.
+    """
+    ratio = _ratios(network, midband.frequency_hz)
+    class_of: dict[str, BandClass] = {}
+    for part in network.parts:
+        if part.kind == "transcapacitance":
+            class_of[part.name] = "open"
+        elif part.kind in ("capacitance", "inductance"):
+            class_of[part.name] = _class(part, ratio[part.name])
+    error = _gain_error(network, midband, class_of)
+    repaired: list[str] = []
+    while midband.plateau and error > GAIN_TOLERANCE:
+        trials = [part.name for part in network.parts if part.kind == "capacitance" and class_of[part.name] == "open"]
+        errors = {name: _gain_error(network, midband, {**class_of, name: "short"}) for name in trials}
+        best = min(errors, key=lambda name: errors[name], default=None)
+        if best is None or errors[best] > error / 2.0:
+            break
+        class_of[best], error = "short", errors[best]
+        repaired.append(best)
+    merged = merged_nodes(network, class_of)
+    try:
+        upper, lower = upper_network(network, class_of, merged), lower_network(network, class_of)
+    except NetworkError:
+        upper, lower, error = network, network, float("inf")
+        merged = {node: node for node in merged}
+    return Bands(
+        network=network,
+        midband=midband,
+        class_of=class_of,
+        ratio=ratio,
+        merged=merged,
+        upper=upper,
+        lower=lower,
+        sound=bool(error <= GAIN_TOLERANCE),
+        repaired=tuple(repaired),
+    )
+
+
+def upper_network(network: Network, class_of: Mapping[str, BandClass], merged: Mapping[str, str]) -> Network:
+    """Merge the short capacitors and take out the open inductors.
+
+    Raises NetworkError where nothing is left at the output.
+    """
+    kept = [part for part in network.parts if not _passes(network, part) or class_of.get(part.name) != "open"]
+    return _renamed(network, kept, merged)
+
+
+def lower_network(network: Network, class_of: Mapping[str, BandClass]) -> Network:
+    """Take out the open capacitors and merge the short inductors.
+
+    Raises NetworkError where nothing is left at the output.
+    """
+    open_capacitor = {"capacitance", "transcapacitance"}
+    kept = [part for part in network.parts if part.kind not in open_capacitor or class_of[part.name] != "open"]
+    joined = [part for part in kept if _passes(network, part) and class_of[part.name] == "short"]
+    return _renamed(network, kept, _union(network, joined))
+
+
+def merged_nodes(network: Network, class_of: Mapping[str, BandClass]) -> dict[str, str]:
+    """Give for every node, ground included, the node that stands for all that short capacitors join with it.
+
+    Ground stands before the output, the output before the first in the order of the network.
+    """
+    shorts = [part for part in network.parts if part.kind == "capacitance" and class_of[part.name] == "short"]
+    return _union(network, shorts)
+
+
+def _class(part: Part, ratio: float) -> BandClass:
+    if ratio > TUNED_ABOVE:
+        return "tuned"
+    passes_above = part.kind == "capacitance"
+    return "short" if (ratio > SHORT_ABOVE) == passes_above else "open"
+
+
+def _passes(network: Network, part: Part) -> bool:
+    """Whether this is an inductor that may be taken out: not the one whose current is the output."""
+    through = fold(network.port.through) if network.port.kind == "current" else None
+    return part.kind == "inductance" and fold(part.owner) != through
+
+
+def _ratios(network: Network, frequency_hz: float) -> dict[str, float]:
+    """Give r for every capacitance and inductance."""
+    parts = [part for part in network.parts if part.kind in ("capacitance", "inductance")]
+    if frequency_hz == 0.0:
+        return {part.name: 0.0 for part in parts}
+    ports = np.zeros((network.size, len(parts)))
+    for k, part in enumerate(parts):
+        if part.kind == "capacitance":
+            ports[:, k] = incidence(network, part.nodes[0], part.nodes[1])
+        else:
+            ports[network.branch(part.owner), k] = 1.0
+    poles = np.abs(pole_frequencies(network))
+    s = np.array([2j * np.pi * frequency_hz, BEYOND_ALL_POLES * max(poles.max(), 2.0 * np.pi * frequency_hz)])
+    seen, limit = np.abs(s[:, None] * _immittance(network, s, ports))
+    fixed = _fixed_by_sources(network)
+    return {
+        part.name: 0.0 if part.value == 0.0 or _is_loop(part, fixed) else float(seen[k] / limit[k])
+        for k, part in enumerate(parts)
+    }
+
+
+def _immittance(network: Network, s: Complex, ports: Real) -> Complex:
+    """Give dᵀ Y(s)⁻¹ d for every column d of ports (n, m) at every s (k,), as (k, m)."""
+    try:
+        seen = np.linalg.solve(admittance(network, s), np.broadcast_to(ports, (len(s), *ports.shape)))
+    except np.linalg.LinAlgError as error:
+        raise NetworkError("the small-signal network has no unique solution") from error
+    return np.asarray(np.sum(seen * ports, axis=1), dtype=complex)
+
+
+def _fixed_by_sources(network: Network) -> dict[str, str]:
+    """Give for every node the one that stands for all that voltage sources tie to it."""
+    return _union(network, [part for part in network.parts if part.kind == "voltage source"])
+
+
+def _is_loop(part: Part, merged: Mapping[str, str]) -> bool:
+    return merged[part.nodes[0]] == merged[part.nodes[1]]
+
+
+def _gain_error(network: Network, midband: MidBand, class_of: Mapping[str, BandClass]) -> float:
+    """Give | |H of the merged network at s = 0| / |H(f_mid)| − 1 |, infinite where it has none."""
+    try:
+        upper = upper_network(network, class_of, merged_nodes(network, class_of))
+        gain = abs(response(upper, np.zeros(1))[0])
+    except NetworkError:
+        return float("inf")
+    return float(abs(gain / abs(midband.gain) - 1.0))
+
+
+def _union(network: Network, joining: list[Part]) -> dict[str, str]:
+    nodes = [GROUND, *network.unknowns[: network.n_nodes]]
+    root = {node: node for node in nodes}
+
+    def find(node: str) -> str:
+        while root[node] != node:
+            root[node] = root[root[node]]
+            node = root[node]
+        return node
+
+    rank = {node: position for position, node in enumerate([GROUND, network.port.plus, network.port.minus, *nodes])}
+    rank |= {network.port.minus: 2, network.port.plus: 1, GROUND: 0}
+    for part in joining:
+        a, b = sorted((find(part.nodes[0]), find(part.nodes[1])), key=lambda node: rank[node])
+        root[b] = a
+    return {node: find(node) for node in nodes}
+
+
+def _renamed(network: Network, parts: list[Part], merged: Mapping[str, str]) -> Network:
+    """Rename nodes; leave out what has become a loop or has no value, but no driven source and no output branch."""
+    kept = []
+    for part in parts:
+        nodes = tuple(merged[node] for node in part.nodes)
+        if not _is_empty(network, part, nodes):
+            kept.append(replace(part, nodes=nodes))
+    port = network.port
+    if port.kind == "voltage":
+        port = Port(merged[port.plus], merged[port.minus])
+    drive = {part.owner: complex(network.amplitude(part)) for part in kept if part.kind.endswith("source")}
+    return assemble(tuple(kept), port, {fold(name): value for name, value in drive.items()})
+
+
+def _is_empty(network: Network, part: Part, nodes: tuple[str, ...]) -> bool:
+    if part.kind in ("capacitance", "transcapacitance") and part.value == 0.0:
+        return True
+    loop = nodes[0] == nodes[1] or (len(nodes) == 4 and nodes[2] == nodes[3])
+    if not loop:
+        return False
+    if part.kind == "voltage source":
+        carries_output = network.port.kind == "current" and fold(network.port.through) == fold(part.owner)
+        return network.amplitude(part) == 0.0 and not carries_output
+    return not (part.kind == "inductance" and not _passes(network, part))

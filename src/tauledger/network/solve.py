@@ -7,15 +7,22 @@ per frequency serves both the forward and the adjoint system.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import TYPE_CHECKING, cast
 
 import numpy as np
 from numpy.typing import NDArray
 
 from tauledger.errors import NetworkError
-from tauledger.network.assemble import Network
+from tauledger.network.assemble import Network, Triplets
+
+if TYPE_CHECKING:
+    from collections.abc import Callable
+
+    from scipy.sparse.linalg import SuperLU
 
 DENSE_LIMIT = 150
 
+Real = NDArray[np.float64]
 Complex = NDArray[np.complex128]
 
 
@@ -36,31 +43,31 @@ def solve(network: Network, s: Complex) -> Solution:
     """
     s = np.atleast_1d(np.asarray(s, dtype=complex))
     if network.size > DENSE_LIMIT:
-        return _solve_sparse(network, s)
-    y = admittance(network, s)
-    try:
-        x = np.linalg.solve(y, np.broadcast_to(network.drive, (len(s), network.size))[..., None])[..., 0]
-        adjoint = np.linalg.solve(
-            y.transpose(0, 2, 1), np.broadcast_to(network.output.astype(complex), x.shape)[..., None]
-        )[..., 0]
-    except np.linalg.LinAlgError as error:
-        raise NetworkError("the small-signal network has no unique solution") from error
-    x, adjoint = x.astype(complex, copy=False), adjoint.astype(complex, copy=False)
-    return Solution(s, x, adjoint, x @ network.output)
+        x, adjoint = _sparse(network, s, adjoint=True)
+    else:
+        y = admittance(network, s)
+        x = _dense(y, network.drive)
+        adjoint = _dense(y.transpose(0, 2, 1), network.output.astype(complex))
+    return Solution(s, x, adjoint, _output(network, x))
 
 
-def response(network: Network, frequency_hz: NDArray[np.float64]) -> Complex:
-    """Give H(j·2πf) at every frequency (k,) in Hz."""
-    s = 2j * np.pi * np.atleast_1d(np.asarray(frequency_hz, dtype=float))
+def response(network: Network, frequency_hz: Real) -> Complex:
+    """Give H(j·2πf) at every frequency (k,) in Hz.
+
+    Raises NetworkError where Y is singular.
+    """
+    s = on_axis(frequency_hz)
     if network.size > DENSE_LIMIT:
-        return _solve_sparse(network, s, adjoint=False).response
-    try:
-        x = np.linalg.solve(admittance(network, s), np.broadcast_to(network.drive, (len(s), network.size))[..., None])[
-            ..., 0
-        ]
-    except np.linalg.LinAlgError as error:
-        raise NetworkError("the small-signal network has no unique solution") from error
-    return x @ network.output
+        x, _ = _sparse(network, s, adjoint=False)
+    else:
+        x = _dense(admittance(network, s), network.drive)
+    return _output(network, x)
+
+
+def on_axis(frequency_hz: Real | float) -> Complex:
+    """Give s = j·2πf in rad/s at every frequency in Hz, (k,)."""
+    s: Complex = (2j * np.pi * np.atleast_1d(np.asarray(frequency_hz, dtype=float))).astype(complex, copy=False)
+    return s
 
 
 def admittance(network: Network, s: Complex) -> Complex:
@@ -70,21 +77,61 @@ def admittance(network: Network, s: Complex) -> Complex:
     return g + s[:, None, None] * c
 
 
-def _solve_sparse(network: Network, s: Complex, *, adjoint: bool = True) -> Solution:
+def times(matrix: Triplets, x: Complex) -> Complex:
+    """Give the matrix times every row of x (k, n), as (k, n)."""
+    if x.shape[1] <= DENSE_LIMIT:
+        return np.asarray(x @ matrix.dense(x.shape[1]).T, dtype=np.complex128)
+    product = np.zeros_like(x)
+    np.add.at(product.T, matrix.row, (x[:, matrix.column] * matrix.value).T)
+    return product
+
+
+def log_slope(network: Network, solution: Solution) -> Complex:
+    """Give d ln H / d ln s = −λᵀ(sC)x / H at every s (k,).
+
+    On the axis its real part is d ln|H| / d ln f, and its imaginary part d arg H / d ln f in radian.
+    Source: adjoint sensitivity, Director and Rohrer, "The generalized adjoint network and network sensitivities",
+    IEEE Trans. Circuit Theory CT-16(3), 1969.
+    """
+    moment: Complex = np.sum(solution.adjoint * times(network.capacitance, solution.x), axis=1)
+    return np.asarray(-solution.s * moment / solution.response, dtype=np.complex128)
+
+
+def _output(network: Network, x: Complex) -> Complex:
+    return (x @ network.output).astype(complex, copy=False)
+
+
+def _dense(y: Complex, right: Complex) -> Complex:
+    try:
+        x = np.linalg.solve(y, np.broadcast_to(right, y.shape[:2])[..., None])[..., 0]
+    except np.linalg.LinAlgError as error:
+        raise NetworkError("the small-signal network has no unique solution") from error
+    if not np.all(np.isfinite(x)):
+        raise NetworkError("the small-signal network has no finite solution")
+    return x.astype(complex, copy=False)
+
+
+def _sparse(network: Network, s: Complex, *, adjoint: bool) -> tuple[Complex, Complex]:
+    x = np.empty((len(s), network.size), dtype=complex)
+    lam = np.zeros_like(x)
+    for k, sk in enumerate(s):
+        factor = _factor(network, complex(sk))
+        x[k] = factor.solve(network.drive)
+        if adjoint:
+            # scipy's stubs leave out the second argument, which asks for the transposed system
+            solve_transposed = cast("Callable[[Complex, str], Complex]", factor.solve)
+            lam[k] = solve_transposed(network.output.astype(complex), "T")
+    return x, lam
+
+
+def _factor(network: Network, s: complex) -> SuperLU[np.complex128]:
     from scipy.sparse import csc_array
     from scipy.sparse.linalg import splu
 
     n = network.size
     g, c = network.conductance, network.capacitance
-    row, column = np.concatenate([g.row, c.row]), np.concatenate([g.column, c.column])
-    x = np.empty((len(s), n), dtype=complex)
-    lam = np.zeros_like(x)
-    for k, sk in enumerate(s):
-        try:
-            factor = splu(csc_array((np.concatenate([g.value, sk * c.value]), (row, column)), shape=(n, n)))
-        except RuntimeError as error:
-            raise NetworkError("the small-signal network has no unique solution") from error
-        x[k] = factor.solve(network.drive)
-        if adjoint:
-            lam[k] = factor.solve(network.output.astype(complex), "T")
-    return Solution(s, x, lam, (x @ network.output).astype(complex))
+    at = (np.concatenate([g.row, c.row]), np.concatenate([g.column, c.column]))
+    try:
+        return splu(csc_array((np.concatenate([g.value, s * c.value]), at), shape=(n, n)))
+    except RuntimeError as error:
+        raise NetworkError("the small-signal network has no unique solution") from error

@@ -1,0 +1,193 @@
+"""The reference of all band edges: the plateau of highest gain, or the maximum of |H| where there is no plateau."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from tauledger.errors import InputError, NetworkError
+from tauledger.network.assemble import Network
+from tauledger.network.solve import Complex, Real, log_slope, on_axis, response, solve
+from tauledger.network.spectrum import pole_frequencies, zero_frequencies
+
+FLAT_SLOPE = 0.10  # d ln|H| / d ln f, 2 dB per decade
+LEVEL_SLOPE = 1e-3
+PLATEAU_DECADES = 0.5
+SAME_GAIN = 10.0 ** (-3.0 / 20.0)
+POINTS_PER_DECADE = 40
+MARGIN = 1e3
+
+
+@dataclass(frozen=True, slots=True)
+class MidBand:
+    """The reference of all band edges.
+
+    frequency_hz: 0 where the plateau reaches DC. from_hz, to_hz: the plateau's extent, 0 at DC, inf without upper
+    limit, both None where there is no plateau. gain: complex H there.
+    """
+
+    frequency_hz: float
+    from_hz: float | None
+    to_hz: float | None
+    gain: complex
+
+    @property
+    def plateau(self) -> bool:
+        """Whether the reference lies on a plateau; else it is the maximum of |H|."""
+        return self.from_hz is not None
+
+
+@dataclass(frozen=True, slots=True)
+class _Scan:
+    """|H| and its exact logarithmic slope over frequency: each (k,)."""
+
+    frequency_hz: Real
+    magnitude: Real
+    slope: Real
+
+
+@dataclass(frozen=True, slots=True)
+class _Plateau:
+    """A run of the scan from point `first` to `last`; frequency_hz is its own reference, gain |H| there."""
+
+    first: int
+    last: int
+    from_hz: float
+    to_hz: float
+    frequency_hz: float
+    gain: float
+
+    @property
+    def decades(self) -> float:
+        if self.from_hz == 0.0 or np.isinf(self.to_hz):
+            return float("inf")
+        return float(np.log10(self.to_hz / self.from_hz))
+
+
+def find_midband(network: Network, *, at_hz: float | None = None) -> MidBand:
+    """Find the plateau of highest gain (|slope| ≤ 2 dB/decade over at least half a decade) and its reference.
+
+    at_hz: take this frequency instead; its plateau's extent is given where it lies on one.
+    Among plateaus within 3 dB of the highest gain the widest is taken. The reference is 0 where that plateau reaches
+    DC, else the stationary point of |H| nearest its middle, so that it does not move to first order; without a plateau
+    it is the maximum of |H|.
+    Raises InputError where at_hz is negative or the response is zero there, NetworkError where it is zero everywhere.
+    """
+    scan = _scan(network)
+    plateaus = _plateaus(network, scan)
+    if at_hz is not None:
+        return _at(network, at_hz, plateaus)
+    if plateaus:
+        highest = max(plateau.gain for plateau in plateaus)
+        near = [plateau for plateau in plateaus if plateau.gain >= highest * SAME_GAIN]
+        best = max(near, key=lambda plateau: (plateau.decades, plateau.gain))
+        frequency = 0.0 if best.from_hz == 0.0 and _direct(network) else _stationary(network, scan, best)
+        return MidBand(frequency, best.from_hz, best.to_hz, complex(response(network, np.array([frequency]))[0]))
+    peak = int(np.argmax(scan.magnitude))
+    frequency = float(scan.frequency_hz[peak])
+    if 0 < peak < len(scan.frequency_hz) - 1:
+        frequency = _bisect(network, float(scan.frequency_hz[peak - 1]), float(scan.frequency_hz[peak + 1]))
+    return MidBand(frequency, None, None, complex(response(network, np.array([frequency]))[0]))
+
+
+def frequency_range(poles: Complex, zeros: Complex) -> tuple[float, float] | None:
+    """Give the range in Hz that holds all that the response does, a thousand times wider; None for a constant one.
+
+    poles, zeros: in rad/s.
+    """
+    p, z = np.abs(poles[np.abs(poles) > 0.0]), np.abs(zeros[np.abs(zeros) > 0.0])
+    if not len(p):
+        return None
+    lowest, highest = float(p.min()), float(max(p.max(), z.max(initial=0.0)))
+    return lowest / (2.0 * np.pi) / MARGIN, highest / (2.0 * np.pi) * MARGIN
+
+
+def _scan(network: Network) -> _Scan:
+    poles = pole_frequencies(network)
+    reach = frequency_range(poles, zero_frequencies(network, poles))
+    low, high = reach or (1.0, 10.0)
+    count = int(np.ceil(np.log10(high / low) * POINTS_PER_DECADE)) + 1
+    frequency = np.geomspace(low, high, count)
+    solution = solve(network, on_axis(frequency))
+    magnitude = np.abs(solution.response)
+    if not np.all(magnitude > 0.0):
+        raise NetworkError("the drive does not reach the output")
+    return _Scan(frequency, magnitude, log_slope(network, solution).real)
+
+
+def _plateaus(network: Network, scan: _Scan) -> list[_Plateau]:
+    flat = np.concatenate([[False], np.abs(scan.slope) <= FLAT_SLOPE, [False]])
+    starts, stops = np.flatnonzero(~flat[:-1] & flat[1:]), np.flatnonzero(flat[:-1] & ~flat[1:]) - 1
+    found = [_plateau(network, scan, int(first), int(last)) for first, last in zip(starts, stops, strict=True)]
+    return [plateau for plateau in found if plateau.decades >= PLATEAU_DECADES]
+
+
+def _plateau(network: Network, scan: _Scan, first: int, last: int) -> _Plateau:
+    top = len(scan.frequency_hz) - 1
+    from_hz = _boundary(scan, first - 1, first) if first > 0 else float(scan.frequency_hz[0])
+    to_hz = _boundary(scan, last, last + 1) if last < top else float(scan.frequency_hz[top])
+    if first == 0 and abs(scan.slope[0]) < LEVEL_SLOPE:
+        from_hz = 0.0
+    if last == top and abs(scan.slope[top]) < LEVEL_SLOPE:
+        to_hz = float("inf")
+    if from_hz == 0.0 and _direct(network):
+        return _Plateau(first, last, from_hz, to_hz, 0.0, float(scan.magnitude[first]))
+    at = _stationary_point(scan, first, last)
+    return _Plateau(first, last, from_hz, to_hz, float(scan.frequency_hz[at]), float(scan.magnitude[at]))
+
+
+def _boundary(scan: _Scan, a: int, b: int) -> float:
+    """Interpolate where |slope| = 2 dB/decade between two neighbours, one flat and one not."""
+    sa, sb = abs(float(scan.slope[a])), abs(float(scan.slope[b]))
+    share = (FLAT_SLOPE - sa) / (sb - sa)
+    return float(scan.frequency_hz[a] * (scan.frequency_hz[b] / scan.frequency_hz[a]) ** share)
+
+
+def _stationary_point(scan: _Scan, first: int, last: int) -> int:
+    """Give the point before the slope's change from + to − nearest the run's middle, else that of the least slope."""
+    slope, middle = scan.slope[first : last + 1], (last - first) / 2.0
+    falls = np.flatnonzero((slope[:-1] > 0.0) & (slope[1:] <= 0.0))
+    if len(falls):
+        return first + int(falls[np.argmin(np.abs(falls + 0.5 - middle))])
+    return first + int(np.argmin(np.abs(slope)))
+
+
+def _stationary(network: Network, scan: _Scan, plateau: _Plateau) -> float:
+    at = _stationary_point(scan, plateau.first, plateau.last)
+    if at < plateau.last and scan.slope[at] > 0.0 >= scan.slope[at + 1]:
+        return _bisect(network, float(scan.frequency_hz[at]), float(scan.frequency_hz[at + 1]))
+    return float(scan.frequency_hz[at])
+
+
+def _bisect(network: Network, low: float, high: float) -> float:
+    """Find where the exact slope of |H| falls through zero between two frequencies, a batch of points at a time."""
+    while high / low - 1.0 > 1e-14:
+        frequency = np.geomspace(low, high, 34)
+        falling = log_slope(network, solve(network, on_axis(frequency))).real <= 0.0
+        after = max(1, int(np.argmax(falling))) if np.any(falling) else len(frequency) - 1
+        if frequency[after - 1] <= low and frequency[after] >= high:
+            break
+        low, high = float(frequency[after - 1]), float(frequency[after])
+    return float(np.sqrt(low * high))
+
+
+def _direct(network: Network) -> bool:
+    """Whether the network can be solved at DC and passes it."""
+    try:
+        gain = response(network, np.zeros(1))[0]
+    except NetworkError:
+        return False
+    return bool(np.isfinite(gain)) and abs(gain) > 0.0
+
+
+def _at(network: Network, at_hz: float, plateaus: list[_Plateau]) -> MidBand:
+    if not (np.isfinite(at_hz) and at_hz >= 0.0):
+        raise InputError(f"mid-band cannot be at {at_hz:g} Hz", "give a frequency of 0 Hz or more, e.g. 10k")
+    gain = complex(response(network, np.array([at_hz]))[0])
+    if abs(gain) == 0.0:
+        raise InputError(f"mid-band cannot be at {at_hz:g} Hz: nothing passes there", "give a frequency in the band")
+    for plateau in plateaus:
+        if plateau.from_hz <= at_hz <= plateau.to_hz:
+            return MidBand(at_hz, plateau.from_hz, plateau.to_hz, gain)
+    return MidBand(at_hz, None, None, gain)

@@ -1,0 +1,122 @@
+"""Natural frequencies: where a pencil G + s·C is singular, over a range of many decades.
+
+One shift-and-invert is accurate only to eps·|s|/σ far above its shift σ, and an amplifier's poles span twelve decades
+and more. So several shifts are used, a window of six decades around each; what lies outside a window is left to the
+others.
+"""
+
+from __future__ import annotations
+
+import numpy as np
+
+from tauledger.errors import NetworkError
+from tauledger.network.assemble import Network
+from tauledger.network.solve import Complex, Real
+
+# Beyond 1e15 Hz only rounding of the infinite natural frequencies is found.
+HIGHEST_RAD_S = 2.0 * np.pi * 1e15
+WINDOW = 1e3
+
+
+def pole_frequencies(network: Network) -> Complex:
+    """Give all finite poles in rad/s, sorted by magnitude, then by the sign of the imaginary part.
+
+    Poles at the origin (a node without a path for direct current) are exact zeros.
+    Raises NetworkError where G + s·C is singular at every s.
+    """
+    g = network.conductance.dense(network.size)
+    c = network.capacitance.dense(network.size)
+    lowest = _lowest(g, c)
+    if lowest is None:
+        return np.zeros(0, dtype=complex)
+    start = lowest[0]
+    return in_order(np.concatenate([np.zeros(lowest[1], dtype=complex), natural_frequencies(g, c, start)]))
+
+
+def zero_frequencies(network: Network, poles: Complex) -> Complex:
+    """Give all finite zeros of the transfer function in rad/s, sorted like the poles.
+
+    They are the natural frequencies of the bordered pencil [Y −b; eᵀ 0] (output nulled, drive free). A zero that lies
+    a million times below the lowest pole counts as one at the origin. `poles` sets the range.
+    Source: Rosenbrock, "State-space and multivariable theory", 1970 (system matrix).
+    """
+    finite = np.abs(poles[np.abs(poles) > 0.0])
+    if not len(finite):
+        return np.zeros(0, dtype=complex)
+    n = network.size
+    g = np.zeros((n + 1, n + 1), dtype=complex)
+    g[:n, :n] = network.conductance.dense(n)
+    g[:n, n], g[n, :n] = -network.drive, network.output
+    c = np.zeros_like(g)
+    c[:n, :n] = network.capacitance.dense(n)
+    start = float(finite.min()) / WINDOW
+    stop = min(float(finite.max()) * WINDOW * WINDOW, HIGHEST_RAD_S)
+    at_origin = np.abs(shifted(g, c, start)) < start / WINDOW
+    zeros = natural_frequencies(g, c, start / WINDOW, stop)
+    return in_order(np.concatenate([np.zeros(int(at_origin.sum()), dtype=complex), zeros]))
+
+
+def natural_frequencies(g: Complex | Real, c: Complex | Real, start: float, stop: float = HIGHEST_RAD_S) -> Complex:
+    """Give the s with det(G + s·C) = 0 and start ≤ |s| < stop, in rad/s, unordered.
+
+    g, c: (n, n). Raises NetworkError where G + s·C is singular at every s.
+    """
+    found: list[Complex] = []
+    low = start
+    while low < stop:
+        s = shifted(g, c, low * WINDOW)
+        high = min(low * WINDOW * WINDOW, stop)
+        found.append(s[(np.abs(s) >= low) & (np.abs(s) < high)])
+        low = high
+    return np.concatenate(found) if found else np.zeros(0, dtype=complex)
+
+
+def shifted(g: Complex | Real, c: Complex | Real, shift: float) -> Complex:
+    """Give all n values s = σ − 1/μ with μ the eigenvalues of (G + σ·C)⁻¹·C; infinite ones where μ = 0.
+
+    Raises NetworkError where G + σ·C is singular.
+    """
+    try:
+        mu = np.linalg.eigvals(np.linalg.solve(g + shift * c, c)).astype(complex)
+    except np.linalg.LinAlgError as error:
+        raise NetworkError("the small-signal network has no unique solution") from error
+    s = np.full(len(mu), complex(np.inf))
+    finite = np.abs(mu) > 0.0
+    s[finite] = shift - 1.0 / mu[finite]
+    return s
+
+
+def in_order(s: Complex) -> Complex:
+    """Sort by magnitude, then by the sign of the imaginary part (above the axis last), so that pairs stay together.
+
+    LAPACK's order of a pair differs between builds and the magnitudes of a pair by rounding.
+    """
+    real = np.abs(s.imag) <= 1e-9 * np.abs(s)
+    s = np.where(real, s.real + 0j, s)
+    key = np.array([float(f"{abs(value):.9e}") for value in s])
+    return s[np.lexsort((s.imag, s.real, key))]
+
+
+def _lowest(g: Real, c: Real) -> tuple[float, int] | None:
+    """Give where to start (at or below the lowest pole that is not at the origin) and how many are at the origin."""
+    if not np.any(c):
+        return None
+    if _regular(g):
+        s = np.abs(shifted(g, c, 0.0))
+        finite = s[s < HIGHEST_RAD_S]
+        return (float(finite.min()) * 0.999, 0) if len(finite) else None
+    # G is singular: no time constant of the network is much longer than its largest part over its smallest
+    conductances, capacitances = np.abs(g[g != 0.0]), np.abs(c[c != 0.0])
+    shift = (float(conductances.min()) if len(conductances) else 1.0) / float(capacitances.max()) / WINDOW
+    s = np.abs(shifted(g, c, shift))
+    return shift / WINDOW, int(np.sum(s < shift / WINDOW))
+
+
+def _regular(g: Real) -> bool:
+    """Whether G has an inverse that rounding leaves any meaning, judged after scaling rows and columns."""
+    rows = np.max(np.abs(g), axis=1)
+    if not np.all(rows):
+        return False
+    scaled = g / rows[:, None]
+    columns = np.max(np.abs(scaled), axis=0)
+    return bool(np.all(columns)) and bool(np.linalg.cond(scaled / columns) < 1e15)
