@@ -1,0 +1,53 @@
+"""Frequencies: the logarithmic grid that ngspice lays out itself, and the way to ask it for any list."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+GEOMETRIC_TOLERANCE = 1e-9
+
+
+@dataclass(frozen=True, slots=True)
+class Grid:
+    """One AC run: `points` per decade from start to stop; points = 0 asks for the single frequency `start_hz`."""
+
+    points: int
+    start_hz: float
+    stop_hz: float
+    count: int
+
+
+def decades(start_hz: float, stop_hz: float, points: int) -> NDArray[np.float64]:
+    """Give the frequencies (n,) in Hz from start to stop, both included, with `points` in each decade.
+
+    The number of steps over the whole range is rounded down, as ngspice's `ac dec` does, so that the engine answers all
+    of them in one run; a range that holds no whole number of steps has slightly wider ones.
+    """
+    steps = max(1, _steps(start_hz, stop_hz, points))
+    return np.geomspace(start_hz, stop_hz, steps + 1)
+
+
+def plan(frequency_hz: NDArray[np.float64]) -> tuple[Grid, ...]:
+    """Give the AC runs that answer these frequencies (n,) in their order.
+
+    A geometric list is one run, where a whole number of points per decade lays it out; any other is one run each.
+    """
+    n = len(frequency_hz)
+    start, stop = float(frequency_hz[0]), float(frequency_hz[-1])
+    if n >= 3 and 0.0 < start < stop:
+        points = math.ceil((n - 1) / math.log10(stop / start) * (1.0 - GEOMETRIC_TOLERANCE))
+        geometric = np.geomspace(start, stop, n)
+        if (
+            np.max(np.abs(frequency_hz / geometric - 1.0)) < GEOMETRIC_TOLERANCE
+            and _steps(start, stop, points) == n - 1
+        ):
+            return (Grid(points, start, stop, n),)
+    return tuple(Grid(0, f, f, 1) for f in frequency_hz.tolist())
+
+
+def _steps(start_hz: float, stop_hz: float, points: int) -> int:
+    return math.floor(abs(math.log10(stop_hz / start_hz)) * points)
