@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Iterable, Mapping
 from dataclasses import dataclass, replace
 from typing import Literal
 
@@ -112,7 +112,26 @@ def lower_network(network: Network, class_of: Mapping[str, BandClass]) -> Networ
     open_capacitor = {"capacitance", "transcapacitance"}
     kept = [part for part in network.parts if part.kind not in open_capacitor or class_of[part.name] != "open"]
     joined = [part for part in kept if _passes(network, part) and class_of[part.name] == "short"]
-    return _renamed(network, kept, _union(network, joined))
+    return _renamed(network, kept, joined_nodes(network, joined))
+
+
+def midband_network(network: Network, class_of: Mapping[str, BandClass]) -> Network:
+    """Merge all shorts and take out all opens, capacitors and inductors alike: what is left is resistive.
+
+    Tuned parts are taken as at DC. Raises NetworkError where nothing is left at the output.
+    """
+    kept = [
+        part
+        for part in network.parts
+        if part.kind not in ("capacitance", "transcapacitance")
+        and (not _passes(network, part) or class_of[part.name] != "open")
+    ]
+    return _renamed(network, kept, midband_nodes(network, class_of))
+
+
+def midband_nodes(network: Network, class_of: Mapping[str, BandClass]) -> dict[str, str]:
+    """Give for every node the one that stands for all that short capacitors and inductors join with it."""
+    return joined_nodes(network, [part for part in network.parts if _wire(network, part, class_of)])
 
 
 def merged_nodes(network: Network, class_of: Mapping[str, BandClass]) -> dict[str, str]:
@@ -121,7 +140,7 @@ def merged_nodes(network: Network, class_of: Mapping[str, BandClass]) -> dict[st
     Ground stands before the output, the output before the first in the order of the network.
     """
     shorts = [part for part in network.parts if part.kind == "capacitance" and class_of[part.name] == "short"]
-    return _union(network, shorts)
+    return joined_nodes(network, shorts)
 
 
 def _class(part: Part, ratio: float) -> BandClass:
@@ -129,6 +148,13 @@ def _class(part: Part, ratio: float) -> BandClass:
         return "tuned"
     passes_above = part.kind == "capacitance"
     return "short" if (ratio > SHORT_ABOVE) == passes_above else "open"
+
+
+def _wire(network: Network, part: Part, class_of: Mapping[str, BandClass]) -> bool:
+    """Whether this part is a wire at mid-band; a tuned inductor counts as one."""
+    if part.kind == "capacitance":
+        return class_of[part.name] == "short"
+    return _passes(network, part) and class_of[part.name] != "open"
 
 
 def _passes(network: Network, part: Part) -> bool:
@@ -169,7 +195,7 @@ def _immittance(network: Network, s: Complex, ports: Real) -> Complex:
 
 def _fixed_by_sources(network: Network) -> dict[str, str]:
     """Give for every node the one that stands for all that voltage sources tie to it."""
-    return _union(network, [part for part in network.parts if part.kind == "voltage source"])
+    return joined_nodes(network, [part for part in network.parts if part.kind == "voltage source"])
 
 
 def _is_loop(part: Part, merged: Mapping[str, str]) -> bool:
@@ -186,7 +212,8 @@ def _gain_error(network: Network, midband: MidBand, class_of: Mapping[str, BandC
     return float(abs(gain / abs(midband.gain) - 1.0))
 
 
-def _union(network: Network, joining: list[Part]) -> dict[str, str]:
+def joined_nodes(network: Network, joining: Iterable[Part]) -> dict[str, str]:
+    """Give for every node, ground included, the node that stands for all that these two-terminal parts join with it."""
     nodes = [GROUND, *network.unknowns[: network.n_nodes]]
     root = {node: node for node in nodes}
 

@@ -1,0 +1,210 @@
+"""Open-circuit time constants: the ledger of the upper band edge.
+
+On the upper network Z = G⁻¹ is the mid-band impedance matrix. A part sees R⁰ = controlᵀ Z out across itself while all
+others have no value; τ = R⁰·C, and b1 = Σ τ = tr(ZC) = −Σ 1/p exactly. Its weight w = 1 − H^i/H^0 compares the
+mid-band gain with the part shorted (an inductance opened) and without it; Σ w·τ = b1 − a1 is the group delay at s = 0.
+
+Sources: Gray, Hurst, Lewis and Meyer, "Analysis and Design of Analog Integrated Circuits", 5th ed., 2009, section
+7.3 (zero-value time constants); Hajimiri, "Generalized time- and transfer-constant circuit analysis", IEEE Trans.
+Circuits Syst. I 57(6), 2010 (transfer constants).
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from tauledger.circuit import GROUND
+from tauledger.devices.parts import PartKind
+from tauledger.errors import NetworkError
+from tauledger.network.assemble import Network
+from tauledger.network.bands import Bands
+from tauledger.network.reactances import moments, reactances
+from tauledger.network.solve import Complex, Real, on_axis, solve, times
+from tauledger.network.spectrum import pole_frequencies
+
+IN_PATH_WEIGHT = 0.05
+IN_PATH_MOMENT = 0.005
+
+
+@dataclass(frozen=True, slots=True)
+class MidBandInverse:
+    """Z = G⁻¹ of a resistive network and its signal solution: z (n, n), x (n,) complex, adjoint (n,), gain H.
+
+    x is driven by the sources; adjoint is Gᵀ⁻¹ e. Z and x are meant at s = 0.
+    """
+
+    network: Network
+    z: Real
+    x: Complex
+    adjoint: Real
+    gain: complex
+
+    def impedance(self, at: str, into: str) -> float:
+        """Give the voltage at node `at` for 1 A into node `into`, in ohm; 0 where either is ground."""
+        row, column = self.network.index(at), self.network.index(into)
+        return 0.0 if row is None or column is None else float(self.z[row, column])
+
+    def across(self, plus: str, minus: str = GROUND) -> float:
+        """Give the resistance between two nodes in ohm, drive nulled."""
+        return (
+            self.impedance(plus, plus)
+            - self.impedance(plus, minus)
+            - self.impedance(minus, plus)
+            + self.impedance(minus, minus)
+        )
+
+    def voltage(self, node: str) -> complex:
+        """Give the signal voltage of a node in V; 0 at ground."""
+        row = self.network.index(node)
+        return 0j if row is None else complex(self.x[row])
+
+    def crossing(self, node: str) -> float:
+        """Give ρ = x·λ/(Z_nn·H), the relative gain lost if the node is shorted to ground; 0 where nothing can be."""
+        row = self.network.index(node)
+        if row is None or self.z[row, row] == 0.0:
+            return 0.0
+        return float((self.x[row] * self.adjoint[row] / (self.z[row, row] * self.gain)).real)
+
+
+@dataclass(frozen=True, slots=True)
+class OpenConstant:
+    """One part of the upper network.
+
+    resistance_ohm: R⁰ across it (a transfer impedance for a transcapacitance; for an inductance the resistance that
+    its terminals face, infinite where they face none). time_constant_s: R⁰·C, for an inductance L/R.
+    weight: 1 − H^i/H^0. in_path: it counts in the path's sums; where not, it is decoupling.
+    """
+
+    name: str
+    kind: PartKind
+    nodes: tuple[str, ...]
+    value: float
+    resistance_ohm: float
+    time_constant_s: float
+    weight: float
+    in_path: bool
+
+
+@dataclass(frozen=True, slots=True)
+class OpenConstants:
+    """The ledger of the upper network at s = 0.
+
+    sum_s: Σ τ over all parts. inverse_pole_sum_s: −Σ 1/p. weighted_sum_s: Σ w·τ. group_delay_s: −dφ/dω of H.
+    b1_s, b2_s2: coefficients of the denominator 1 + b1·s + b2·s² + …
+    node_time_constant_s: τ_i = Σ_k C_ik Z_ki by node of the upper network; branch_time_constant_s: those of the
+    inductors' branch currents by owner. All of them add to b1.
+    """
+
+    parts: tuple[OpenConstant, ...]
+    sum_s: float
+    inverse_pole_sum_s: float
+    weighted_sum_s: float
+    group_delay_s: float
+    b1_s: float
+    b2_s2: float
+    node_time_constant_s: dict[str, float]
+    branch_time_constant_s: dict[str, float]
+
+    def part(self, name: str) -> OpenConstant:
+        """Give one part's row by its name; KeyError where it is not in the upper network."""
+        for constant in self.parts:
+            if constant.name == name:
+                return constant
+        raise KeyError(name)
+
+
+def midband_inverse(bands: Bands) -> MidBandInverse:
+    """Give Z of the mid-band network, i.e. G⁻¹ of the upper one, with its signal solution.
+
+    Raises NetworkError where G of the upper network is singular.
+    """
+    return inverse(bands.upper)
+
+
+def inverse(network: Network) -> MidBandInverse:
+    """Give G⁻¹ of any network with its signal solution at s = 0.
+
+    Raises NetworkError where G is singular.
+    """
+    try:
+        z = np.asarray(np.linalg.inv(network.conductance.dense(network.size)), dtype=np.float64)
+    except np.linalg.LinAlgError as error:
+        raise NetworkError("the mid-band network has no unique solution") from error
+    x = (z @ network.drive).astype(complex)
+    adjoint = np.asarray(z.T @ network.output, dtype=np.float64)
+    return MidBandInverse(network, z, x, adjoint, complex(network.output @ x))
+
+
+def open_constants(bands: Bands) -> OpenConstants:
+    """Give R⁰, τ and weight of every part of the upper network, and their sums.
+
+    A part is decoupling, not in the path, where its weight is below 5 % and w·τ below 0.5 % of Σ|w·τ|: shorting it
+    changes nothing that reaches the output, nor does its time constant. Such parts change the sums over the path by
+    less than 1 %.
+    Raises NetworkError where G of the upper network is singular.
+    """
+    upper = bands.upper
+    mid = midband_inverse(bands)
+    terms = reactances(upper)
+    solution = solve(upper, on_axis(0.0))
+    tau: Real = terms.value * np.sum(terms.control * (mid.z @ terms.out), axis=0)
+    moment: Real = moments(terms, solution)[0].real
+    total = float(np.sum(np.abs(moment)))
+    rows = []
+    for k, part in enumerate(terms.parts):
+        weight = float(moment[k] / tau[k]) if tau[k] != 0.0 else 0.0
+        rows.append(
+            OpenConstant(
+                name=part.name,
+                kind=part.kind,
+                nodes=part.nodes,
+                value=part.value,
+                resistance_ohm=_facing(part.kind, part.value, float(tau[k])),
+                time_constant_s=float(tau[k]),
+                weight=weight,
+                in_path=abs(weight) >= IN_PATH_WEIGHT or abs(float(moment[k])) > IN_PATH_MOMENT * total,
+            )
+        )
+    c = upper.capacitance.dense(upper.size)
+    zc = mid.z @ c
+    b1 = float(np.trace(zc))
+    diagonal = np.sum(c * mid.z.T, axis=1)
+    poles = pole_frequencies(upper)
+    n = upper.n_nodes
+    return OpenConstants(
+        parts=tuple(rows),
+        sum_s=float(np.sum(tau)),
+        inverse_pole_sum_s=float(-np.sum(1.0 / poles).real) if len(poles) else 0.0,
+        weighted_sum_s=float(np.sum(moment)),
+        group_delay_s=_group_delay_at_dc(upper),
+        b1_s=b1,
+        b2_s2=0.5 * (b1 * b1 - float(np.sum(zc * zc.T))),
+        node_time_constant_s={node: float(diagonal[i]) for i, node in enumerate(upper.unknowns[:n])},
+        branch_time_constant_s={
+            owner: float(diagonal[n + i]) for i, owner in enumerate(upper.unknowns[n:]) if diagonal[n + i] != 0.0
+        },
+    )
+
+
+def group_delay(network: Network, frequency_hz: float) -> dict[str, float]:
+    """Give each reactive part's contribution to the group delay −dφ/dω at one frequency, in s; they add to it.
+
+    Re(C·λ_ab·v_ab/H) for a capacitance, likewise for the other kinds.
+    Raises NetworkError where the network has no unique solution there.
+    """
+    terms = reactances(network)
+    delay = moments(terms, solve(network, on_axis(frequency_hz)))[0].real
+    return {name: float(value) for name, value in zip(terms.names, delay, strict=True)}
+
+
+def _group_delay_at_dc(network: Network) -> float:
+    solution = solve(network, on_axis(0.0))
+    return float((np.sum(solution.adjoint * times(network.capacitance, solution.x)) / solution.response[0]).real)
+
+
+def _facing(kind: PartKind, value: float, tau: float) -> float:
+    if kind == "inductance":
+        return value / tau if tau != 0.0 else float("inf")
+    return tau / value

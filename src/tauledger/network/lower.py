@@ -1,0 +1,134 @@
+"""Short-circuit time constants: what each coupling and bypass capacitor does to the lower band edge.
+
+R_k is the resistance across capacitor k while all other mid-band shorts are shorted and all opens open; then
+Σ 1/(R_k·C_k) = −Σ p of the lower network exactly (inductors that are open at mid-band: R/L), unless capacitors alone
+form a loop. Alone, capacitor k makes a pole at f_k = 1/(2πR_kC_k) and a zero at f_k·H(open)/H(short).
+
+Source: Gray, Hurst, Lewis and Meyer, "Analysis and Design of Analog Integrated Circuits", 5th ed., 2009, section
+7.3.6 (short-circuit time constants).
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+
+import numpy as np
+
+from tauledger.devices.parts import Part
+from tauledger.errors import NetworkError
+from tauledger.network.assemble import Network
+from tauledger.network.bands import BandClass, Bands, joined_nodes, midband_network, midband_nodes
+from tauledger.network.constants import inverse
+from tauledger.network.spectrum import pole_frequencies
+
+IN_PATH_WEIGHT = 0.05
+IN_PATH_MOMENT = 0.02
+NOTHING = 1e-12
+
+
+@dataclass(frozen=True, slots=True)
+class ShortConstant:
+    """Capacitors in parallel that are short at mid-band, taken together, or one inductor that is open there.
+
+    value: F (their sum) or H. resistance_ohm: across them, all others in their mid-band state; 0 where they close a
+    loop of capacitors. edge_hz: 1/(2πRC) or R/(2πL). zero_hz: edge_hz · H(without)/H(mid-band), signed as H is.
+    weight: 1 − H(without)/H(mid-band), "without" being the capacitor opened or the inductor shorted.
+    """
+
+    names: tuple[str, ...]
+    nodes: tuple[str, ...]
+    value: float
+    resistance_ohm: float
+    edge_hz: float
+    zero_hz: float
+    weight: float
+    in_path: bool
+
+
+@dataclass(frozen=True, slots=True)
+class ShortConstants:
+    """The ledger of the lower network: Σ f_k and −Σ p/2π in Hz, both None where capacitors alone form a loop."""
+
+    parts: tuple[ShortConstant, ...]
+    sum_hz: float | None
+    pole_sum_hz: float | None
+
+
+def short_constants(bands: Bands) -> ShortConstants:
+    """Give R, edge and zero of every mid-band short (inductors: open) in the lower network, and the sum of the edges.
+
+    A row is not in the path where its weight is below 5 % and weight·edge below 2 % of their sum: decoupling.
+    Raises NetworkError where the mid-band network has no unique solution.
+    """
+    network, gain = bands.network, inverse(midband_network(bands.network, bands.class_of)).gain
+    groups = _parallel(network, [part for part in network.parts if _is_short(bands, part)])
+    groups += [(part,) for part in network.parts if part.kind == "inductance" and bands.class_of[part.name] == "open"]
+    facts = [_alone(network, bands.class_of, group, gain) for group in groups]
+    total = sum(abs((1.0 - left) * edge) for _, edge, left in facts if np.isfinite(edge))
+    rows = tuple(
+        ShortConstant(
+            names=tuple(part.name for part in group),
+            nodes=group[0].nodes,
+            value=sum(part.value for part in group),
+            resistance_ohm=ohm,
+            edge_hz=edge,
+            zero_hz=edge * left if abs(left) > NOTHING else 0.0,
+            weight=1.0 - left,
+            in_path=abs(1.0 - left) >= IN_PATH_WEIGHT or abs((1.0 - left) * edge) > IN_PATH_MOMENT * total,
+        )
+        for group, (ohm, edge, left) in zip(groups, facts, strict=True)
+    )
+    edges = [row.edge_hz for row in rows]
+    if not np.all(np.isfinite(edges)):
+        return ShortConstants(rows, None, None)
+    poles = pole_frequencies(bands.lower)
+    return ShortConstants(rows, float(sum(edges)), float(-np.sum(poles).real / (2.0 * np.pi)))
+
+
+def _is_short(bands: Bands, part: Part) -> bool:
+    return part.kind == "capacitance" and part.value != 0.0 and bands.class_of[part.name] == "short"
+
+
+def _parallel(network: Network, shorts: list[Part]) -> list[tuple[Part, ...]]:
+    """Group capacitors whose ends are the same once undriven voltage sources are taken as the wires that they are."""
+    wires = [part for part in network.parts if part.kind == "voltage source" and network.amplitude(part) == 0.0]
+    tied = joined_nodes(network, wires)
+    groups: dict[frozenset[str], list[Part]] = {}
+    for part in shorts:
+        groups.setdefault(frozenset(tied[node] for node in part.nodes), []).append(part)
+    return [tuple(group) for group in groups.values()]
+
+
+def _alone(
+    network: Network, class_of: Mapping[str, BandClass], group: tuple[Part, ...], gain: complex
+) -> tuple[float, float, float]:
+    """Give resistance in ohm, edge in Hz and H(without)/H(mid-band) of one row, all others in their mid-band state."""
+    value = sum(part.value for part in group)
+    if group[0].kind == "inductance":
+        ohm = _across(network, class_of, group[0])
+        without = inverse(midband_network(network, {**class_of, group[0].name: "short"})).gain
+        return ohm, ohm / (2.0 * np.pi * value), float((without / gain).real)
+    opened: dict[str, BandClass] = {**class_of, **{part.name: "open" for part in group}}
+    ohm = _across(network, opened, group[0])
+    if not np.isfinite(ohm):
+        return ohm, 0.0, 1.0
+    without = inverse(midband_network(network, opened)).gain
+    edge = 1.0 / (2.0 * np.pi * ohm * value) if ohm else float("inf")
+    return ohm, edge, float((without / gain).real)
+
+
+def _across(network: Network, class_of: Mapping[str, BandClass], part: Part) -> float:
+    """Give the resistance across an open part; infinite where nothing else joins its ends, 0 where sources fix them."""
+    merged = midband_nodes(network, class_of)
+    a, b = (merged[node] for node in part.nodes)
+    mid = midband_network(network, class_of)
+    tied = joined_nodes(mid, [other for other in mid.parts if other.kind == "voltage source"])
+    if not {a, b} <= tied.keys():
+        return float("inf")
+    if tied[a] == tied[b]:
+        return 0.0
+    try:
+        return inverse(mid).across(a, b)
+    except NetworkError:
+        return float("inf")
