@@ -273,7 +273,7 @@ def _no_unique_solution(nodes: tuple[str, ...], says: tuple[str, ...]) -> Engine
     if not nodes:
         return EngineError("ngspice found no unique operating point", CONVERGENCE_HINT, says)
     return EngineError(
-        f"the operating point is not determined at {', '.join(nodes)}",
+        f"the operating point is not determined: look at {', '.join(nodes)}",
         "every node needs a DC path to ground, and no loop may hold voltage sources and inductors alone",
     )
 

@@ -14,9 +14,10 @@ from typing import Literal
 State = Literal["sound", "stepped", "failed", "singular", "rejected", "dead"]
 
 _DEAD = re.compile(r"cannot recover|returned 1\b", re.I)
-_SINGULAR = re.compile(r"singular matrix|source stepping failed|transient op|not positive definite", re.I)
+_SINGULAR = re.compile(r"singular matrix|not positive definite", re.I)
 _CHECK = re.compile(r"check nodes?\s+(.*)", re.I)
-_FAILED = re.compile(r"\baborted\b|check your input line", re.I)
+# A pseudo-transient ("Transient op") that finishes leaves whatever the circuit had drifted to: no operating point.
+_FAILED = re.compile(r"\baborted\b|check your input line|source stepping failed|transient op", re.I)
 _STEPPED = re.compile(r"stepping completed", re.I)
 _HARMLESS = re.compile(
     r"""^\s*$ | gmin\ stepping | gmin\ step | ^trying\ gmin | gmin\ increment | source\ step | ^supplies\ reduced
