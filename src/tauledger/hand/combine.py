@@ -223,7 +223,7 @@ def _combine(hand: list[float], exact: list[float], roots: Roots, *, lower: bool
         coefficients=pair,
         roots=roots,
         far_gain=_far_gain(poles, zeros),
-        stable=bool(np.all(roots.poles.real < 0) and np.all(roots.cancelled.real < 0)),
+        stable=bool(np.all(roots.poles.real <= 0) and np.all(roots.cancelled.real <= 0)),
     )
 
 

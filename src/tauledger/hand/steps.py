@@ -7,7 +7,7 @@ Steps: lowest (the dominant time constant alone), all-nodes, exact-constants, tw
 from __future__ import annotations
 
 import math
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Iterable, Sequence
 
 import numpy as np
 
@@ -15,25 +15,41 @@ from tauledger.hand.combine import Combined
 from tauledger.hand.estimate import Edge, LowerRow, SignalNode, StepEstimate
 from tauledger.quantity import engineering, percent
 
+IN_WORDS = {
+    "all-nodes": "the other time constants",
+    "exact-constants": "the exact time constants",
+    "two-coefficients": "the interaction",
+    "all-poles": "the further poles",
+    "zeros": "the zeros",
+    "full": "the real mid-band",
+}
+
 LARGE = 0.05
 WORTH_NAMING = 0.005
+SAME = 1e-4
+# σ = b2 / Σ τ_i·τ_j is 1 for nodes that do not see each other.
+SPLITTING = 0.5
+INDEPENDENT = (0.8, 1.25)
 
 
-def upper_steps(nodes: Sequence[SignalNode], combined: Combined, *, full_hz: float | None) -> tuple[StepEstimate, ...]:
+def upper_steps(
+    nodes: Sequence[SignalNode], combined: Combined, *, full_hz: float | None, stable: bool = True
+) -> tuple[StepEstimate, ...]:
     """Give the steps from the lowest signal node alone to f_H of the full network.
 
     combined: of `combine_upper` with the same nodes. full_hz: f_H of the full network, None where there is none.
+    stable: no pole of the full network lies in the right half plane.
     Empty where the network is unstable or no pole lies between input and output.
     The step two-coefficients is left out where it leads away from where all poles lead back.
     """
-    if not combined.stable or len(combined.roots.poles) == 0:
+    if not (stable and combined.stable) or len(combined.roots.poles) == 0:
         return ()
     rows = sorted((node for node in nodes if node.in_path), key=lambda node: -node.time_constant_s)
     reasons = {
         "lowest": _lowest_node(rows),
         "all-nodes": _other_nodes(rows),
         "exact-constants": _exact_nodes(rows),
-        "two-coefficients": _interaction(combined, "node"),
+        "two-coefficients": _interaction(combined, "capacitance"),
         "all-poles": _more_poles(combined, "node", "third and higher poles"),
         "zeros": _zeros(combined, nearest=min, levels="the zero at {} holds the gain up"),
         "full": "coupling capacitors are real: mid-band is not flat",
@@ -41,14 +57,17 @@ def upper_steps(nodes: Sequence[SignalNode], combined: Combined, *, full_hz: flo
     return _walk("f_high", combined, reasons, full_hz)
 
 
-def lower_steps(rows: Sequence[LowerRow], combined: Combined, *, full_hz: float | None) -> tuple[StepEstimate, ...]:
+def lower_steps(
+    rows: Sequence[LowerRow], combined: Combined, *, full_hz: float | None, stable: bool = True
+) -> tuple[StepEstimate, ...]:
     """Give the steps from the capacitor with the highest edge alone to f_L of the full network.
 
     combined: of `combine_lower` with the same rows. full_hz: f_L of the full network, None where there is none.
+    stable: no pole of the full network lies in the right half plane.
     Empty where the network is unstable or no pole lies between input and output.
     The step two-coefficients is left out where it leads away from where all poles lead back.
     """
-    if not combined.stable or len(combined.roots.poles) == 0:
+    if not (stable and combined.stable) or len(combined.roots.poles) == 0:
         return ()
     counted = sorted((row for row in rows if row.in_path), key=lambda row: -row.edge_hand_hz)
     reasons = {
@@ -89,6 +108,8 @@ def _walk(edge: Edge, combined: Combined, reasons: dict[str, str], full_hz: floa
         reasons = {**reasons, "full": "no -3 dB frequency here either"}
     elif full_hz is None:
         reasons = {**reasons, "full": f"{reasons['full']}, and it never falls 3 dB below its reference"}
+    elif combined.with_zeros is not None and abs(full_hz / combined.with_zeros - 1.0) < SAME:
+        reasons = {**reasons, "full": "nothing on the other side of mid-band moves it"}
     return _say_what_cancels(tuple(StepEstimate(edge, step, value, reasons[step]) for step, value in hz.items()))
 
 
@@ -100,7 +121,7 @@ def _say_what_cancels(steps: tuple[StepEstimate, ...]) -> tuple[StepEstimate, ..
             a, b = moves[earlier], moves[later]
             opposite = a * b < 0 and min(abs(a), abs(b)) >= math.log1p(LARGE)
             if opposite and abs(a + b) <= 0.5 * min(abs(a), abs(b)):
-                back = f"; cancels the {percent(math.expm1(a))} of an earlier step"
+                back = f"; cancels the {percent(math.expm1(a))} of {IN_WORDS[steps[earlier].step]}"
                 told[later] = StepEstimate(
                     steps[later].edge, steps[later].step, steps[later].hz, steps[later].why + back
                 )
@@ -134,7 +155,7 @@ def _exact_nodes(rows: list[SignalNode]) -> str:
     total = math.fsum(abs(row.time_constant_exact_s) for row in rows)
     worst = max(rows, key=lambda row: abs(row.time_constant_s - row.time_constant_exact_s), default=None)
     if worst is None or abs(worst.time_constant_s - worst.time_constant_exact_s) <= WORTH_NAMING * total:
-        return "the time constants by hand are the exact ones"
+        return "the time constants by hand agree with the exact ones"
     return (
         f"exact time constants: {worst.title} {_seconds(worst.time_constant_s)} by hand, "
         f"{_seconds(worst.time_constant_exact_s)} exact"
@@ -160,7 +181,7 @@ def _exact_capacitors(rows: list[LowerRow]) -> str:
     total = math.fsum(row.edge_exact_hz for row in rows)
     worst = max(rows, key=lambda row: abs(row.edge_hand_hz - row.edge_exact_hz), default=None)
     if worst is None or abs(worst.edge_hand_hz - worst.edge_exact_hz) <= WORTH_NAMING * total:
-        return "the resistances by hand are the exact ones"
+        return "the resistances by hand agree with the exact ones"
     return (
         f"exact resistances: {worst.title} {_ohm(worst.resistance.ohm)} by hand, "
         f"{_ohm(worst.resistance_exact_ohm)} exact"
@@ -175,13 +196,15 @@ def _interaction(combined: Combined, thing: str) -> str:
     if pair.q is not None and pair.q > 0.5:
         how = f"the {thing}s pull each other: b1 and b2 give a complex pair, Q = {pair.q:.2f}"
     elif sigma is None:
-        how = f"one {thing} counts, its second pole is b1²/b2 = {pair.separation:.3g} away"
-    elif sigma < 0.5:
-        how = f"each {'capacitance' if thing == 'node' else 'capacitor'} loads the other: the two poles split"
-    elif sigma <= 1.5:
+        how = f"one time constant counts, the poles beside it are at {', '.join(_frequencies(poles)[1:3])}"
+    elif sigma < SPLITTING:
+        how = f"each {thing} loads the other{'s' if len(poles) > 2 else ''}: the poles split"
+    elif sigma < INDEPENDENT[0]:
+        how = f"each {thing} loads the other{'s' if len(poles) > 2 else ''}"
+    elif sigma <= INDEPENDENT[1]:
         how = f"the {thing}s hardly act on each other"
     else:
-        how = f"the {thing}s pull each other: the two poles move together"
+        how = f"the {thing}s pull each other: their poles move together"
     return how + of_sigma + _cancelled(combined)
 
 
@@ -190,10 +213,10 @@ def _more_poles(combined: Combined, thing: str, words: str) -> str:
     if thing == "capacitor":
         poles.reverse()
     if combined.two_coefficients_overshoot:
-        nearest = ", ".join(_unique_frequencies(poles)[:4])
+        nearest = ", ".join(_frequencies(poles)[:4])
         sigma = "" if combined.sigma is None else f" (σ = {combined.sigma:.2g})"
         return f"the {thing}s act on each other{sigma} and more than two poles count: {nearest}" + _cancelled(combined)
-    further = _unique_frequencies(poles[2:])
+    further = _frequencies(poles[2:])
     if not further:
         return "there is no third pole"
     more = f" and {len(further) - 2} more" if len(further) > 2 else ""
@@ -203,7 +226,7 @@ def _more_poles(combined: Combined, thing: str, words: str) -> str:
 def _cancelled(combined: Combined) -> str:
     if len(combined.roots.cancelled) == 0:
         return ""
-    told = _unique_frequencies([complex(pole) for pole in combined.roots.cancelled])
+    told = _frequencies([complex(pole) for pole in combined.roots.cancelled])
     more = f" and {len(told) - 2} more" if len(told) > 2 else ""
     return f"; cancelled by a zero each and left out: the pole at {', '.join(told[:2])}{more}"
 
@@ -236,7 +259,7 @@ def _zero_owner(rows: list[LowerRow], combined: Combined) -> str:
     return f" ({owner.title})"
 
 
-def _unique_frequencies(poles: Sequence[complex]) -> list[str]:
+def _frequencies(poles: Iterable[complex]) -> list[str]:
     return [_hz(abs(pole) / (2 * math.pi)) for pole in poles if pole.imag >= 0]
 
 

@@ -1,0 +1,58 @@
+"""Which causes and notes there are, and what a review asks: why do the numbers differ, what must be known of them."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+
+from tauledger.causes import notes
+from tauledger.causes.cause import Cause, Note
+from tauledger.causes.complex_poles import complex_poles_above, complex_poles_below
+from tauledger.causes.evidence import Evidence
+from tauledger.causes.gain_falls_first import gain_falls_first
+from tauledger.causes.interaction import interaction_above, interaction_below
+from tauledger.causes.no_dominant_pole import no_dominant_pole_above, no_dominant_pole_below
+from tauledger.causes.output_left_out import other_node_left_out, output_left_out
+from tauledger.causes.zero_near_edge import zero_near_lower_edge, zero_near_upper_edge
+
+CAUSES: tuple[Callable[[Evidence], Cause | None], ...] = (
+    output_left_out,
+    other_node_left_out,
+    gain_falls_first,
+    interaction_above,
+    interaction_below,
+    no_dominant_pole_above,
+    no_dominant_pole_below,
+    complex_poles_above,
+    complex_poles_below,
+    zero_near_upper_edge,
+    zero_near_lower_edge,
+)
+
+NOTES: tuple[Callable[[Evidence], Note | None], ...] = (
+    notes.unstable,
+    notes.stepped_operating_point,
+    notes.no_plateau,
+    notes.hand_withheld,
+    notes.levels_off_above,
+    notes.levels_off_below,
+    notes.ill_conditioned_above,
+    notes.ill_conditioned_below,
+    notes.neither_short_nor_open,
+    notes.tuned,
+    notes.ideal_drive,
+    notes.model_without_charge,
+)
+
+WORTH_TELLING = 0.02
+
+
+def find_causes(evidence: Evidence) -> tuple[Cause, ...]:
+    """Give the causes that move an edge by 2 % or more, the largest effect first."""
+    found = [cause for cause in (look(evidence) for look in CAUSES) if cause is not None]
+    worth = [cause for cause in found if abs(cause.effect) >= WORTH_TELLING]
+    return tuple(sorted(worth, key=lambda cause: -abs(cause.effect)))
+
+
+def find_notes(evidence: Evidence) -> tuple[Note, ...]:
+    """Give the notes, in the order of `NOTES`: what forbids trust first."""
+    return tuple(note for note in (look(evidence) for look in NOTES) if note is not None)

@@ -1,0 +1,104 @@
+"""Everything that a cause or a note may look at, frozen, and the few questions that several of them ask."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+from tauledger.causes.cause import Quantity
+from tauledger.devices.family import Device
+from tauledger.hand.combine import Combined
+from tauledger.hand.estimate import Edge, LowerRow, SignalNode, StepEstimate
+from tauledger.network.bands import Bands
+from tauledger.network.solve import Complex
+from tauledger.quantity import engineering
+
+
+@dataclass(frozen=True, slots=True)
+class EdgeEvidence:
+    """One band edge.
+
+    hz: exact, None where there is none. slope: d ln|H| / d ln f there. combined, steps: None and empty where the hand
+    side is withheld.
+    """
+
+    edge: Edge
+    hz: float | None
+    slope: float | None
+    combined: Combined | None
+    steps: tuple[StepEstimate, ...]
+
+    @property
+    def quantity(self) -> Quantity:
+        """The edge as the trade writes it."""
+        return "f_H" if self.edge == "f_high" else "f_L"
+
+
+@dataclass(frozen=True, slots=True)
+class Evidence:
+    """One reviewed network.
+
+    poles, zeros: of the full network in rad/s (n,), (m,). devices: empty where the network was not read from a netlist.
+    stepped: the engine found the operating point only by stepping.
+    """
+
+    bands: Bands
+    poles: Complex
+    zeros: Complex
+    devices: tuple[Device, ...]
+    nodes: tuple[SignalNode, ...]
+    capacitors: tuple[LowerRow, ...]
+    upper: EdgeEvidence
+    lower: EdgeEvidence
+    stepped: bool = False
+
+
+def move(edge: EdgeEvidence, later: str, earlier: str) -> float | None:
+    """Give by which fraction the estimate moved from step `earlier` to step `later`; None where one is missing."""
+    hz = {step.step: step.hz for step in edge.steps}
+    after, before = hz.get(later), hz.get(earlier)
+    return after / before - 1.0 if after is not None and before is not None else None
+
+
+def interaction_step(edge: EdgeEvidence) -> str:
+    """Name the step at which the capacitances act on each other: all-poles where two coefficients tell nothing."""
+    named = {step.step for step in edge.steps}
+    return "two-coefficients" if "two-coefficients" in named else "all-poles"
+
+
+def counted(nodes: tuple[SignalNode, ...]) -> list[SignalNode]:
+    """Give the signal nodes that count with a positive time constant, the lowest pole by hand first."""
+    rows = [node for node in nodes if node.in_path and node.time_constant_s > 0]
+    return sorted(rows, key=lambda row: -row.time_constant_s)
+
+
+def outward(edge: EdgeEvidence) -> list[complex]:
+    """Give the visible poles (of a pair the one above the axis) from mid-band outwards, rad/s."""
+    if edge.combined is None:
+        return []
+    poles = [complex(pole) for pole in edge.combined.roots.poles if pole.imag >= 0 and pole != 0]
+    return poles if edge.edge == "f_high" else poles[::-1]
+
+
+def nearest_zero(edge: EdgeEvidence) -> complex | None:
+    """Give the visible zero nearest mid-band (of a pair the one above the axis), rad/s; None without one off DC."""
+    if edge.combined is None:
+        return None
+    zeros = [complex(zero) for zero in edge.combined.roots.zeros if zero.imag >= 0 and zero != 0]
+    choose = min if edge.edge == "f_high" else max
+    return choose(zeros, key=abs, default=None)
+
+
+def hertz(omega: complex) -> float:
+    """Give |s|/2π in Hz."""
+    return abs(omega) / (2 * math.pi)
+
+
+def in_hertz(hz: float) -> str:
+    """Write a frequency with three digits."""
+    return engineering(hz, "Hz", 3)
+
+
+def in_seconds(seconds: float) -> str:
+    """Write a time constant with three digits."""
+    return engineering(seconds, "s", 3)

@@ -1,0 +1,89 @@
+"""The gain falls before Miller's multiplied capacitance can act: at that node's pole it is no longer multiplied."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from tauledger.causes.cause import Cause
+from tauledger.causes.evidence import Evidence, counted, hertz, in_hertz, interaction_step, move, outward
+from tauledger.circuit import GROUND
+from tauledger.hand.estimate import InnerLine, MillerTerm, SignalNode
+from tauledger.network.assemble import Network
+from tauledger.network.solve import admittance
+from tauledger.record import NamedNumber
+
+
+@dataclass(frozen=True, slots=True)
+class _Fallen:
+    """A Miller term whose factor |1 − K| at the pole that it makes by hand is less than half of that at mid-band."""
+
+    row: SignalNode
+    term: MillerTerm
+    hand_hz: float
+    factor: float
+
+
+def gain_falls_first(evidence: Evidence) -> Cause | None:
+    """At a node's pole by hand its Miller factor has already halved, and the second pole is twice as high or more.
+
+    Effect: two coefficients (or all poles, where those tell nothing) ÷ lowest node alone.
+    """
+    poles = outward(evidence.upper)
+    effect = move(evidence.upper, interaction_step(evidence.upper), "lowest")
+    if effect is None or len(poles) < 2:
+        return None
+    fallen = [found for row in counted(evidence.nodes) for found in _fallen(evidence, row)]
+    fallen = [found for found in fallen if found.hand_hz < 0.5 * hertz(poles[1])]
+    if not fallen:
+        return None
+    worst = max(fallen, key=lambda found: found.term.farad * found.term.factor)
+    return Cause(
+        cause="gain-falls-first",
+        quantity="f_H",
+        effect=effect,
+        where=worst.row.title,
+        says=f"{worst.term.part} counts {worst.term.factor:.3g} times at {worst.row.title}, a pole at "
+        f"{in_hertz(worst.hand_hz)} by hand; there the gain has fallen and it counts only {worst.factor:.2g} times: "
+        f"the second pole is at {in_hertz(hertz(poles[1]))}",
+        instead="take both poles from b1 and b2 (1/b1 and b1/b2), not one pole per node",
+        numbers=(
+            NamedNumber("Miller factor at mid-band", worst.term.factor, ""),
+            NamedNumber("Miller factor at the pole by hand", worst.factor, ""),
+            NamedNumber("pole by hand", worst.hand_hz, "Hz"),
+            NamedNumber("second pole", hertz(poles[1]), "Hz"),
+        ),
+    )
+
+
+def _fallen(evidence: Evidence, row: SignalNode) -> list[_Fallen]:
+    found = []
+    omega = 1.0 / row.time_constant_s
+    for line in row.lines:
+        for term in line.capacitances:
+            if term.factor < 2.0:
+                continue
+            gain = _gain(evidence, line, term, omega)
+            if gain is not None and abs(1.0 - gain) < 0.5 * term.factor:
+                found.append(_Fallen(row, term, hertz(omega), abs(1.0 - gain)))
+    return found
+
+
+def _gain(evidence: Evidence, line: InnerLine, term: MillerTerm, omega: float) -> complex | None:
+    """Give K = Z_ji/Z_ii at jω, driven from the line's node to the capacitance's other end; None where grounded."""
+    upper, merged = evidence.bands.upper, evidence.bands.merged
+    here = merged.get(line.node, line.node)
+    ends = {merged.get(node, node) for node in evidence.bands.network.part(term.part).nodes}
+    other = ends - {here, GROUND}
+    if here not in ends or len(other) != 1:
+        return None
+    return _driven_gain(upper, here, other.pop(), omega)
+
+
+def _driven_gain(network: Network, here: str, other: str, omega: float) -> complex:
+    i, j = network.index(here), network.index(other)
+    injected = np.zeros(network.size)
+    injected[i] = 1.0
+    v = np.linalg.solve(admittance(network, np.array([1j * omega]))[0], injected)
+    return complex(v[j] / v[i])

@@ -1,0 +1,260 @@
+"""What the reader must know about the numbers: notes have no effect in per cent.
+
+A hazardous supply is not a note but a caution: it concerns the reader, not the numbers.
+"""
+
+from __future__ import annotations
+
+import math
+
+import numpy as np
+
+from tauledger.causes.cause import Note
+from tauledger.causes.evidence import EdgeEvidence, Evidence, in_hertz
+from tauledger.circuit import GROUND
+from tauledger.errors import NetworkError
+from tauledger.network.assemble import Network
+from tauledger.network.midband import frequency_range
+from tauledger.network.solve import response
+from tauledger.quantity import engineering, percent
+
+SHALLOW = 0.2
+HALF_SHORT = (0.3, 0.95)
+POINTS_PER_DECADE = 60
+DRIVEN_TERMINALS = ("base", "gate", "emitter", "source")
+
+
+def unstable(evidence: Evidence) -> Note | None:
+    """A pole in the right half plane: no band edge has a meaning."""
+    right = [complex(pole) for pole in evidence.poles if pole.real > 1e-9 * abs(pole) and pole.imag >= 0]
+    if not right:
+        return None
+    at = ", ".join(in_hertz(abs(pole) / (2 * math.pi)) for pole in right[:3])
+    return Note(
+        "unstable",
+        f"pole at {at}",
+        f"pole in the right half plane at {at}: the circuit is not stable at this operating point, an AC response is "
+        "calculated all the same but never settles to it",
+    )
+
+
+def stepped_operating_point(evidence: Evidence) -> Note | None:
+    """The engine found the operating point only by gmin or source stepping."""
+    if not evidence.stepped:
+        return None
+    return Note(
+        "stepped-operating-point",
+        "",
+        "ngspice found the operating point only by stepping (gmin or sources): the circuit may have a second one; "
+        "check the bias before trusting any figure",
+    )
+
+
+def no_plateau(evidence: Evidence) -> Note | None:
+    """The response has no flat part; how much of the gain with ideal couplings is left where |H| is largest."""
+    midband = evidence.bands.midband
+    if midband.plateau:
+        return None
+    left = ""
+    ideal = _ideal_gain(evidence)
+    if ideal:
+        loss = abs(midband.gain) / ideal - 1.0
+        left = f" ({percent(loss)} against all couplings short and all device and load capacitances open)"
+    return Note(
+        "no-plateau",
+        in_hertz(midband.frequency_hz),
+        f"there is no plateau: the reference is |H| at {in_hertz(midband.frequency_hz)}{left}; band edges and shares "
+        "refer to it, the tables by hand are withheld",
+    )
+
+
+def hand_withheld(evidence: Evidence) -> Note | None:
+    """No choice of shorts and opens restores the mid-band gain within 2 %."""
+    if evidence.bands.sound or not evidence.bands.midband.plateau:
+        return None
+    return Note(
+        "hand-withheld",
+        "",
+        "taking every capacitor as a short or an open misses the mid-band gain by more than 2 %: the tables by hand "
+        "are withheld",
+    )
+
+
+def levels_off_above(evidence: Evidence) -> Note | None:
+    """Poles act above mid-band, but |H| never falls 3 dB below it."""
+    combined = evidence.upper.combined
+    acts = len(combined.roots.poles) > 0 if combined is not None else len(evidence.poles) > 0
+    if evidence.upper.hz is not None or not acts:
+        return None
+    reach = frequency_range(evidence.poles, evidence.zeros)
+    if reach is None:
+        return None
+    level = abs(response(evidence.bands.network, np.array([reach[1]]))[0] / evidence.bands.midband.gain)
+    return Note(
+        "levels-off",
+        "f_H",
+        f"|H| levels off at {_decibel(level)} of mid-band and never falls 3 dB: there is no f_H, and a time constant "
+        "here is no band edge",
+    )
+
+
+def levels_off_below(evidence: Evidence) -> Note | None:
+    """The reference lies above DC, but |H| never falls 3 dB below it on the way down."""
+    midband = evidence.bands.midband
+    if evidence.lower.hz is not None or midband.frequency_hz == 0.0 or midband.from_hz == 0.0:
+        return None
+    reach = frequency_range(evidence.poles, evidence.zeros)
+    if reach is None:
+        return None
+    level = abs(response(evidence.bands.network, np.array([reach[0]]))[0] / midband.gain)
+    return Note(
+        "levels-off",
+        "f_L",
+        f"|H| levels off towards DC at {_decibel(level)} of mid-band and never falls 3 dB: there is no f_L",
+    )
+
+
+def ill_conditioned_above(evidence: Evidence) -> Note | None:
+    """|H| falls so slowly at f_H that small changes move it far."""
+    return _ill_conditioned(evidence, evidence.upper, upwards=True)
+
+
+def ill_conditioned_below(evidence: Evidence) -> Note | None:
+    """|H| falls so slowly at f_L that small changes move it far."""
+    return _ill_conditioned(evidence, evidence.lower, upwards=False)
+
+
+def neither_short_nor_open(evidence: Evidence) -> Note | None:
+    """Capacitors that are neither clearly short nor clearly open at mid-band (0.3 < r < 0.95)."""
+    low, high = HALF_SHORT
+    capacitors = {part.name for part in evidence.bands.network.parts if part.kind == "capacitance"}
+    between = {name: ratio for name, ratio in evidence.bands.ratio.items() if name in capacitors and low < ratio < high}
+    if not between:
+        return None
+    names = ", ".join(between)
+    say = "is" if len(between) == 1 else "are"
+    each = ", ".join(f"{name} {ratio:.2f}" for name, ratio in between.items())
+    return Note(
+        "neither-short-nor-open",
+        names,
+        f"{names} {say} neither short nor open at {in_hertz(evidence.bands.midband.frequency_hz)} (|Z| of the "
+        f"resistance beside it against both in parallel: {each}; 0 is open, 1 is short): figures by hand are rough",
+    )
+
+
+def tuned(evidence: Evidence) -> Note | None:
+    """Reactances in resonance at mid-band."""
+    names = ", ".join(name for name, kind in evidence.bands.class_of.items() if kind == "tuned")
+    if not names:
+        return None
+    return Note(
+        "tuned",
+        names,
+        f"{names} resonates at {in_hertz(evidence.bands.midband.frequency_hz)}: neither short nor open, no time "
+        "constant by hand",
+    )
+
+
+def ideal_drive(evidence: Evidence) -> Note | None:
+    """A driven voltage source sits on a transistor's input with no resistance in between, but the device's own."""
+    network, merged = evidence.bands.network, evidence.bands.merged
+    driven: dict[str, str] = {}
+    for part in network.parts:
+        if part.kind == "voltage source" and network.amplitude(part) != 0:
+            driven |= {merged[node]: part.owner for node in part.nodes if merged[node] != GROUND}
+    for device in evidence.devices:
+        for terminal in device.terminals:
+            source = driven.get(merged.get(terminal.outer, terminal.outer))
+            if source is not None and device.cell is not None and terminal.word in DRIVEN_TERMINALS:
+                own = (
+                    "" if terminal.inner == terminal.outer else _own_resistance(network, terminal.outer, terminal.inner)
+                )
+                return _ideal(source, f"{terminal.word} of {device.name} ({terminal.outer})", own)
+    for part in network.parts:
+        if part.kind == "transconductance" and not evidence.devices:
+            for node in part.nodes[2:]:
+                source = driven.get(merged[node])
+                if source is not None:
+                    return _ideal(source, f"input of {part.owner} ({node})", "")
+    return None
+
+
+def model_without_charge(evidence: Evidence) -> Note | None:
+    """Transistors whose model gives them no capacitance at all."""
+    names = ", ".join(device.name for device in evidence.devices if device.without_charge)
+    if not names:
+        return None
+    return Note(
+        "model-without-charge",
+        names,
+        f"the model of {names} has no capacitance (no junction capacitance, no transit time): f_H leaves out the "
+        "device altogether and comes out too high",
+    )
+
+
+def _ill_conditioned(evidence: Evidence, edge: EdgeEvidence, *, upwards: bool) -> Note | None:
+    if edge.hz is None or edge.slope is None or abs(edge.slope) >= SHALLOW:
+        return None
+    reach = frequency_range(evidence.poles, evidence.zeros)
+    if reach is None:
+        return None
+    where = [_falls(evidence, reach, decibel, upwards=upwards) for decibel in (1.0, 6.0)]
+    told = " and ".join(
+        f"-{decibel} dB is at {in_hertz(hz)}" if hz is not None else f"-{decibel} dB is never reached"
+        for decibel, hz in zip((1, 6), where, strict=True)
+    )
+    return Note(
+        "ill-conditioned-edge",
+        edge.quantity,
+        f"|H| falls by only {abs(edge.slope) * 20:.2g} dB per decade at {edge.quantity}: small changes move it far, no "
+        f"node limits it; {told}",
+    )
+
+
+def _falls(evidence: Evidence, reach: tuple[float, float], decibel: float, *, upwards: bool) -> float | None:
+    """Give the first frequency, going outwards from mid-band, where |H| is `decibel` below it."""
+    midband, network = evidence.bands.midband, evidence.bands.network
+    start = max(midband.frequency_hz, reach[0])
+    stop = reach[1] if upwards else reach[0]
+    if start == stop:
+        return None
+    count = 2 + int(POINTS_PER_DECADE * abs(math.log10(stop / start)))
+    level = abs(midband.gain) * 10 ** (-decibel / 20)
+    for _ in range(5):
+        grid = np.geomspace(start, stop, count)
+        below = np.flatnonzero(np.abs(response(network, grid)) <= level)
+        if len(below) == 0:
+            return None
+        first = int(below[0])
+        start, stop, count = float(grid[max(first - 1, 0)]), float(grid[first]), 50
+    return stop
+
+
+def _ideal_gain(evidence: Evidence) -> float | None:
+    bands = evidence.bands
+    if bands.upper is bands.network:
+        return None
+    try:
+        return float(abs(response(bands.upper, np.zeros(1))[0]))
+    except NetworkError:
+        return None
+
+
+def _own_resistance(network: Network, outer: str, inner: str) -> str:
+    siemens = sum(
+        part.value for part in network.parts if part.kind == "conductance" and set(part.nodes) == {outer, inner}
+    )
+    return f" but the device's own {engineering(1 / siemens, 'Ω', 3)}" if siemens > 0 else ""
+
+
+def _ideal(source: str, where: str, own: str) -> Note:
+    return Note(
+        "ideal-drive",
+        where,
+        f"{source} drives the {where} with no resistance in between{own}: the capacitance there costs nothing, a real "
+        "source does not do that; put its resistance into the netlist",
+    )
+
+
+def _decibel(level: float) -> str:
+    return f"{20 * math.log10(level):+.2g} dB" if level > 0 else "at zero"
