@@ -9,7 +9,7 @@ import numpy as np
 from tauledger.errors import InputError, NetworkError
 from tauledger.network.assemble import Network
 from tauledger.network.solve import Complex, Real, log_slope, on_axis, response, solve
-from tauledger.network.spectrum import pole_frequencies, zero_frequencies
+from tauledger.network.spectrum import frequency_grid, pole_frequencies, zero_frequencies
 
 FLAT_SLOPE = 0.10  # d ln|H| / d ln f, 2 dB per decade
 LEVEL_SLOPE = 1e-3
@@ -105,10 +105,9 @@ def frequency_range(poles: Complex, zeros: Complex) -> tuple[float, float] | Non
 
 def _scan(network: Network) -> _Scan:
     poles = pole_frequencies(network)
-    reach = frequency_range(poles, zero_frequencies(network, poles))
-    low, high = reach or (1.0, 10.0)
-    count = int(np.ceil(np.log10(high / low) * POINTS_PER_DECADE)) + 1
-    frequency = np.geomspace(low, high, count)
+    zeros = zero_frequencies(network, poles)
+    low, high = frequency_range(poles, zeros) or (1.0, 10.0)
+    frequency = frequency_grid(low, high, POINTS_PER_DECADE, np.concatenate([poles, zeros]))
     solution = solve(network, on_axis(frequency))
     magnitude = np.abs(solution.response)
     if not np.all(magnitude > 0.0):
@@ -146,10 +145,11 @@ def _boundary(scan: _Scan, a: int, b: int) -> float:
 
 def _stationary_point(scan: _Scan, first: int, last: int) -> int:
     """Give the point before the slope's change from + to − nearest the run's middle, else that of the least slope."""
-    slope, middle = scan.slope[first : last + 1], (last - first) / 2.0
+    slope, place = scan.slope[first : last + 1], np.log(scan.frequency_hz[first : last + 1])
     falls = np.flatnonzero((slope[:-1] > 0.0) & (slope[1:] <= 0.0))
     if len(falls):
-        return first + int(falls[np.argmin(np.abs(falls + 0.5 - middle))])
+        middle = 0.5 * (place[0] + place[-1])
+        return first + int(falls[np.argmin(np.abs(0.5 * (place[falls] + place[falls + 1]) - middle))])
     return first + int(np.argmin(np.abs(slope)))
 
 

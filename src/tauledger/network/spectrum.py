@@ -16,6 +16,8 @@ from tauledger.network.solve import Complex, Real
 # Beyond 1e15 Hz only rounding of the infinite natural frequencies is found.
 HIGHEST_RAD_S = 2.0 * np.pi * 1e15
 WINDOW = 1e3
+_SPREAD = 0.5 * 2.0 ** np.arange(6)
+RESONANCE_OFFSETS = np.concatenate([-_SPREAD[::-1], _SPREAD])
 
 
 def pole_frequencies(network: Network) -> Complex:
@@ -120,3 +122,15 @@ def _regular(g: Real) -> bool:
     scaled = g / rows[:, None]
     columns = np.max(np.abs(scaled), axis=0)
     return bool(np.all(columns)) and bool(np.linalg.cond(scaled / columns) < 1e15)
+
+
+def frequency_grid(low_hz: float, high_hz: float, per_decade: int, roots: Complex) -> Real:
+    """Give frequencies in Hz, evenly spaced in the logarithm, and closer around every resonance among `roots` (rad/s).
+
+    A pole or zero pair of high Q lies between two points of any even grid.
+    """
+    even = np.geomspace(low_hz, high_hz, int(np.ceil(np.log10(high_hz / low_hz) * per_decade)) + 1)
+    sharp = roots[(roots.imag > 0.0) & (np.abs(roots.real) < 0.1 * np.abs(roots))]
+    half_width = np.maximum(np.abs(sharp.real), 1e-6 * np.abs(sharp))
+    near = (sharp.imag + half_width * RESONANCE_OFFSETS[:, None]).ravel() / (2.0 * np.pi)
+    return np.unique(np.concatenate([even, near[(near > low_hz) & (near < high_hz)]]))

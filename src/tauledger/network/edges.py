@@ -1,0 +1,221 @@
+"""Band edges: where |H| first falls 3 dB below mid-band, going outwards.
+
+The response is scanned outwards from the reference, then each crossing is refined on ln|H| with the exact slope
+d ln|H|/d ln f of the adjoint solution, to rounding.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from tauledger.network.assemble import Network
+from tauledger.network.midband import MidBand, frequency_range
+from tauledger.network.solve import Complex, Real, log_slope, on_axis, response, solve
+from tauledger.network.spectrum import frequency_grid, pole_frequencies, zero_frequencies
+
+HALF_POWER = 1.0 / np.sqrt(2.0)
+POINTS_PER_DECADE = 60
+SHALLOW_SLOPE = 0.2
+LEVEL_SLOPE = 1e-3
+UNCHANGED = 0.01
+ROUNDING = 1e-14
+
+
+@dataclass(frozen=True, slots=True)
+class Edge:
+    """One side of the band.
+
+    hz: the first −3 dB crossing, None where there is none. slope: d ln|H|/d ln f there (−1 per pole far above it).
+    phase_deg: phase there minus phase at mid-band, unwrapped. peaking_db: the highest gain on this side above
+    mid-band, at peaking_at_hz (None and 0 dB where the gain never rises). further_hz: later −3 dB crossings.
+    settles_at: |H|/|H_mid| where the response levels off at the end of this side, None where it keeps falling.
+    minus_1_db_hz, minus_6_db_hz: given where the slope is shallow (|slope| < 0.2), which makes the edge ill-defined.
+    """
+
+    hz: float | None
+    slope: float | None
+    phase_deg: float | None
+    peaking_db: float
+    peaking_at_hz: float | None
+    further_hz: tuple[float, ...]
+    settles_at: float | None
+    minus_1_db_hz: float | None = None
+    minus_6_db_hz: float | None = None
+
+    @property
+    def shallow(self) -> bool:
+        """Whether the edge is ill-conditioned: a small change moves it far."""
+        return self.slope is not None and abs(self.slope) < SHALLOW_SLOPE
+
+
+@dataclass(frozen=True, slots=True)
+class Edges:
+    """Both band edges; one is None where the response does not leave mid-band on that side.
+
+    frequency_hz: (k,) the scan. response: (k,) complex H there.
+    """
+
+    f_low: Edge | None
+    f_high: Edge | None
+    frequency_hz: Real
+    response: Complex
+
+
+@dataclass(frozen=True, slots=True)
+class _Side:
+    """The scan going outwards from the reference: frequency and |H|/|H_mid|, each (k,)."""
+
+    frequency_hz: Real
+    gain: Real
+
+
+def find_edges(network: Network, midband: MidBand) -> Edges:
+    """Find the first −3 dB crossing on either side of mid-band, refined to rounding.
+
+    midband: its frequency and gain are the reference; see `at_same_frequency` for a changed network.
+    Raises NetworkError where the network has no unique solution.
+    """
+    poles = pole_frequencies(network)
+    zeros = zero_frequencies(network, poles)
+    reach = frequency_range(poles, zeros)
+    if reach is None:
+        return Edges(None, None, np.zeros(0), np.zeros(0, dtype=complex))
+    frequency = frequency_grid(*reach, POINTS_PER_DECADE, np.concatenate([poles, zeros]))
+    h = response(network, frequency)
+    above, below = _sides(midband, frequency, np.abs(h))
+    angle = _Angle(poles, zeros, midband)
+    return Edges(
+        f_low=None if midband.frequency_hz == 0.0 else _edge(network, midband, below, angle),
+        f_high=_edge(network, midband, above, angle),
+        frequency_hz=frequency,
+        response=h,
+    )
+
+
+def at_same_frequency(network: Network, midband: MidBand) -> MidBand:
+    """Give the reference at the same frequency in a changed network; its plateau's extent is carried over."""
+    return replace(midband, gain=complex(response(network, np.array([midband.frequency_hz]))[0]))
+
+
+@dataclass(frozen=True, slots=True)
+class _Angle:
+    """Phase by poles and zeros, continuous along the axis: it chooses the turn of the exact phase."""
+
+    poles: Complex
+    zeros: Complex
+    midband: MidBand
+
+    def beyond_midband(self, frequency_hz: float, h: complex) -> float:
+        """Give the phase of h at this frequency minus that at mid-band, in degrees, unwrapped."""
+        exact = float(np.angle(h / self.midband.gain, deg=True))
+        turning = self._sum(self.zeros, frequency_hz) - self._sum(self.poles, frequency_hz)
+        return exact + 360.0 * round((turning - exact) / 360.0)
+
+    def _sum(self, roots: Complex, frequency_hz: float) -> float:
+        ends = np.array([self.midband.frequency_hz, frequency_hz])
+        moving = roots[roots != 0.0]
+        # seen from a root, the axis point turns through the angle whose tangent is its height over its distance
+        height = 2.0 * np.pi * ends[:, None] - moving.imag
+        distance = np.where(moving.real == 0.0, np.finfo(float).tiny, -moving.real)
+        turn = np.arctan(height / np.abs(distance)) * np.sign(distance)
+        return float(np.degrees(np.sum(turn[1] - turn[0])))
+
+
+def _sides(midband: MidBand, frequency: Real, magnitude: Real) -> tuple[_Side, _Side]:
+    gain = magnitude / abs(midband.gain)
+    f_mid = midband.frequency_hz
+    above, below = frequency > f_mid, frequency < f_mid
+    start = f_mid if f_mid > 0.0 else frequency[0] / 10.0
+    return (
+        _Side(np.concatenate([[start], frequency[above]]), np.concatenate([[1.0], gain[above]])),
+        _Side(np.concatenate([[start], frequency[below][::-1]]), np.concatenate([[1.0], gain[below][::-1]])),
+    )
+
+
+def _edge(network: Network, midband: MidBand, side: _Side, angle: _Angle) -> Edge | None:
+    if len(side.gain) < 2 or np.all(np.abs(side.gain - 1.0) <= UNCHANGED):
+        return None
+    crossings = _crossings(network, midband, side, HALF_POWER)
+    hz = crossings[0] if crossings else None
+    slope = phase = None
+    if hz is not None:
+        at = solve(network, on_axis(hz))
+        slope = float(log_slope(network, at)[0].real)
+        phase = angle.beyond_midband(hz, complex(at.response[0]))
+    peaking_db, peaking_at = _peaking(network, midband, side)
+    end = solve(network, on_axis(side.frequency_hz[-1:]))
+    levels = abs(float(log_slope(network, end)[0].real)) < LEVEL_SLOPE
+    edge = Edge(
+        hz=hz,
+        slope=slope,
+        phase_deg=phase,
+        peaking_db=peaking_db,
+        peaking_at_hz=peaking_at,
+        further_hz=tuple(crossings[1:]),
+        settles_at=float(side.gain[-1]) if levels else None,
+    )
+    if not edge.shallow:
+        return edge
+    one, six = (_crossings(network, midband, side, 10.0 ** (-db / 20.0), only_first=True) for db in (1.0, 6.0))
+    return replace(edge, minus_1_db_hz=one[0] if one else None, minus_6_db_hz=six[0] if six else None)
+
+
+def _crossings(
+    network: Network, midband: MidBand, side: _Side, level: float, *, only_first: bool = False
+) -> list[float]:
+    """Give where |H| crosses level·|H_mid|, outwards, in Hz; the first is a fall, the next a rise, and so on."""
+    over = side.gain >= level
+    changes = np.flatnonzero(over[:-1] != over[1:])[: 1 if only_first else None]
+    return [
+        crossing(network, level * abs(midband.gain), float(side.frequency_hz[k]), float(side.frequency_hz[k + 1]))
+        for k in changes
+    ]
+
+
+def crossing(network: Network, magnitude: float, a_hz: float, b_hz: float) -> float:
+    """Find the frequency in Hz between a_hz and b_hz where |H| = magnitude, by Newton's method inside the bracket.
+
+    |H| must lie on different sides of it at the two ends. Works on ln|H| over ln f, where a slope is a power law.
+    """
+    ends = np.abs(response(network, np.array([a_hz, b_hz])))
+    a, b = float(np.log(a_hz)), float(np.log(b_hz))
+    rises = bool(ends[1] > ends[0])
+    start, end = np.log(ends / magnitude)
+    u = a + (b - a) * float(start / (start - end))
+    for _ in range(100):
+        at = solve(network, on_axis(np.exp(u)))
+        miss = float(np.log(np.abs(at.response[0]) / magnitude))
+        slope = float(log_slope(network, at)[0].real)
+        if (miss > 0.0) == rises:
+            b = u
+        else:
+            a = u
+        step = u - miss / slope if slope != 0.0 else 0.5 * (a + b)
+        following = step if min(a, b) <= step <= max(a, b) else 0.5 * (a + b)
+        if abs(following - u) <= ROUNDING:
+            return float(np.exp(following))
+        u = following
+    return float(np.exp(u))
+
+
+def _peaking(network: Network, midband: MidBand, side: _Side) -> tuple[float, float | None]:
+    """Give the highest gain on this side in dB above mid-band and its frequency, refined by the exact slope."""
+    top = int(np.argmax(side.gain))
+    if top == 0 or side.gain[top] <= 1.0 + 1e-9:
+        return 0.0, None
+    if top == len(side.gain) - 1:
+        return float(20.0 * np.log10(side.gain[top])), float(side.frequency_hz[top])
+    a, b = float(side.frequency_hz[top - 1]), float(side.frequency_hz[top + 1])
+    outwards = 1.0 if b > a else -1.0
+    for _ in range(3):
+        points = np.geomspace(a, b, 34)
+        slope = outwards * log_slope(network, solve(network, on_axis(points))).real
+        falls = np.flatnonzero((slope[:-1] > 0.0) & (slope[1:] <= 0.0))
+        if not len(falls):
+            break
+        a, b = float(points[falls[0]]), float(points[falls[0] + 1])
+    at = float(np.sqrt(a * b))
+    gain = abs(complex(response(network, np.array([at]))[0])) / abs(midband.gain)
+    return float(20.0 * np.log10(gain)), at

@@ -1,0 +1,141 @@
+"""The network solved again with parts of other value: bias and reference frequency held, the change finite.
+
+This is what "rerun" and "10 % less" mean. Scaling one part changes Y by a matrix of rank one, so all single changes
+are scanned together from the solutions of the unchanged network, and only the crossings are solved anew.
+
+Source of the rank-one formula: Sherman and Morrison, "Adjustment of an inverse matrix corresponding to a change in one
+element of a given matrix", Ann. Math. Stat. 21(1), 1950.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from tauledger.errors import NetworkError
+from tauledger.network.assemble import Network, assemble
+from tauledger.network.edges import HALF_POWER, Edges, at_same_frequency, crossing, find_edges
+from tauledger.network.midband import MidBand
+from tauledger.network.reactances import Reactances, reactances
+from tauledger.network.solve import DENSE_LIMIT, Complex, Real, admittance, on_axis
+
+SCANNED_BEYOND = 10.0
+
+
+@dataclass(frozen=True, slots=True)
+class EdgeFrequencies:
+    """Both band edges in Hz, None where there is none."""
+
+    f_low: float | None
+    f_high: float | None
+
+
+def scaled(network: Network, factors: Mapping[str, float]) -> Network:
+    """Give the network with the values of the named parts multiplied: S of a conductance, F, H.
+
+    Raises KeyError where a name belongs to no part.
+    """
+    for name in factors:
+        network.part(name)
+    parts = tuple(replace(part, value=part.value * factors.get(part.name, 1.0)) for part in network.parts)
+    return assemble(parts, network.port, network.amplitudes)
+
+
+def without(network: Network, names: frozenset[str]) -> Network:
+    """Give the network with the named parts taken out.
+
+    Raises KeyError where a name belongs to no part, NetworkError where nothing is left at the output.
+    """
+    for name in names:
+        network.part(name)
+    kept = tuple(part for part in network.parts if part.name not in names)
+    return assemble(kept, network.port, network.amplitudes)
+
+
+def edge_frequencies(network: Network, midband: MidBand) -> EdgeFrequencies:
+    """Give the band edges of a changed network, its reference at the unchanged mid-band frequency.
+
+    Raises NetworkError where the network has no unique solution.
+    """
+    edges = find_edges(network, at_same_frequency(network, midband))
+    return EdgeFrequencies(
+        edges.f_low.hz if edges.f_low else None,
+        edges.f_high.hz if edges.f_high else None,
+    )
+
+
+def each_scaled(network: Network, midband: MidBand, edges: Edges, factor: float) -> dict[str, EdgeFrequencies]:
+    """Give the band edges with one reactive part at a time multiplied by `factor`, by part name.
+
+    edges: those of the unchanged network. The scan reaches ten times beyond them; where an edge is not found there,
+    that part's network is searched in full.
+    Raises NetworkError where a network has no unique solution.
+    """
+    terms = reactances(network)
+    if not len(edges.frequency_hz) or not terms.parts:
+        return {name: EdgeFrequencies(None, None) for name in terms.names}
+    frequency = _window(midband, edges)
+    gain = np.abs(_each_response(network, terms, np.concatenate([[midband.frequency_hz], frequency]), factor))
+    result = {}
+    for k, part in enumerate(terms.parts):
+        level = HALF_POWER * float(gain[0, k])
+        changed = scaled(network, {part.name: factor})
+        found = EdgeFrequencies(
+            f_low=_first(changed, level, midband.frequency_hz, frequency[::-1], gain[:0:-1, k], outwards=-1.0),
+            f_high=_first(changed, level, midband.frequency_hz, frequency, gain[1:, k], outwards=1.0),
+        )
+        complete = all(
+            (edge is None or edge.hz is None) == (hz is None)
+            for edge, hz in ((edges.f_low, found.f_low), (edges.f_high, found.f_high))
+        )
+        result[part.name] = found if complete else edge_frequencies(changed, midband)
+    return result
+
+
+def _window(midband: MidBand, edges: Edges) -> Real:
+    """Give the part of the scan that reaches somewhat beyond the band edges; all of it on a side without an edge."""
+    low, high = edges.frequency_hz[0], edges.frequency_hz[-1]
+    if edges.f_low is not None and edges.f_low.hz is not None:
+        low = edges.f_low.hz / SCANNED_BEYOND
+    elif midband.frequency_hz == 0.0 and edges.f_high is not None and edges.f_high.hz is not None:
+        low = edges.f_high.hz / SCANNED_BEYOND**3
+    if edges.f_high is not None and edges.f_high.hz is not None:
+        high = edges.f_high.hz * SCANNED_BEYOND
+    inside: Real = edges.frequency_hz[(edges.frequency_hz >= low) & (edges.frequency_hz <= high)]
+    return inside
+
+
+def _each_response(network: Network, terms: Reactances, frequency_hz: Real, factor: float) -> Complex:
+    """Give H (k, m) at every frequency with each of the m parts scaled alone."""
+    s = on_axis(frequency_hz)
+    right = np.concatenate([network.drive[:, None], terms.out.astype(complex)], axis=1)
+    batch = len(s) if network.size <= DENSE_LIMIT else 1
+    rows = []
+    for first in range(0, len(s), batch):
+        at = s[first : first + batch]
+        try:
+            solved = np.linalg.solve(admittance(network, at), np.broadcast_to(right, (len(at), *right.shape)))
+        except np.linalg.LinAlgError as error:
+            raise NetworkError("the small-signal network has no unique solution") from error
+        reached = np.einsum("n,knm->km", network.output, solved)
+        controls = np.einsum("nm,kn->km", terms.control, solved[:, :, 0])
+        own = np.einsum("nm,knm->km", terms.control, solved[:, :, 1:])
+        added = at[:, None] * terms.value * (factor - 1.0)
+        rows.append(reached[:, :1] - added * reached[:, 1:] * controls / (1.0 + added * own))
+    return np.concatenate(rows)
+
+
+def _first(
+    network: Network, level: float, f_mid: float, frequency_hz: Real, magnitude: Real, *, outwards: float
+) -> float | None:
+    """Give the first crossing of the level going outwards from f_mid; frequency and magnitude run outwards."""
+    side = outwards * (frequency_hz - f_mid) > 0.0
+    frequency, over = frequency_hz[side], magnitude[side] >= level
+    falls = np.flatnonzero(~over)
+    if not len(falls):
+        return None
+    k = int(falls[0])
+    inside = float(frequency[k - 1]) if k > 0 else (f_mid or float(frequency[0]) / SCANNED_BEYOND)
+    return crossing(network, level, inside, float(frequency[k]))
