@@ -1,1 +1,61 @@
-"""tauledger reconciles the hand analysis of a transistor amplifier with its SPICE simulation."""
+"""tauledger reconciles the hand analysis of a transistor amplifier with its SPICE simulation.
+
+`review(path)` is the whole walk; `Network.from_parts(...)` enters it without netlist and engine.
+Names are imported when they are first used, so that `tauledger --help` stays quick.
+"""
+
+from __future__ import annotations
+
+from importlib import import_module
+from typing import TYPE_CHECKING, Any
+
+if TYPE_CHECKING:
+    from tauledger.circuit import Change, Circuit
+    from tauledger.errors import InputError, NetlistError, TauledgerError
+    from tauledger.netlist.elaborate import elaborate
+    from tauledger.netlist.reader import read
+    from tauledger.network.assemble import Network
+    from tauledger.pipeline import review
+    from tauledger.record import Review
+    from tauledger.report.json import to_json
+    from tauledger.report.terminal import render
+
+_HOMES = {
+    "Change": "tauledger.circuit",
+    "Circuit": "tauledger.circuit",
+    "InputError": "tauledger.errors",
+    "NetlistError": "tauledger.errors",
+    "Network": "tauledger.network.assemble",
+    "Review": "tauledger.record",
+    "TauledgerError": "tauledger.errors",
+    "elaborate": "tauledger.netlist.elaborate",
+    "read": "tauledger.netlist.reader",
+    "render": "tauledger.report.terminal",
+    "review": "tauledger.pipeline",
+    "to_json": "tauledger.report.json",
+}
+
+__all__ = [
+    "Change",
+    "Circuit",
+    "InputError",
+    "NetlistError",
+    "Network",
+    "Review",
+    "TauledgerError",
+    "elaborate",
+    "read",
+    "render",
+    "review",
+    "to_json",
+]
+
+
+def __getattr__(name: str) -> Any:
+    if name not in _HOMES:
+        raise AttributeError(f"module {__name__!r} has no attribute {name!r}")
+    return getattr(import_module(_HOMES[name]), name)
+
+
+def __dir__() -> list[str]:
+    return sorted({*globals(), *__all__})

@@ -1,4 +1,4 @@
-"""Numbers with units in engineering notation, and the netlist's own way of writing them."""
+"""Numbers with units in engineering notation, and changes in per cent."""
 
 from __future__ import annotations
 
@@ -9,19 +9,28 @@ from quantiphy import Quantity
 MICRO = "µ"
 
 
-def engineering(value: float, unit: str = "", digits: int = 4) -> str:
-    """Write `value` with an SI prefix, e.g. 0.00272 A → "2.72 mA".
+class _Figure(Quantity):
+    """A quantity with preferences of its own, so that nobody else's are touched."""
 
-    digits: significant digits; trailing zeros are kept so that columns line up.
+
+_Figure.set_prefs(map_sf={"u": MICRO, "μ": MICRO}, spacer=" ", strip_radix=True, form="si")
+
+
+def engineering(value: float, unit: str = "", digits: int = 4, *, zeros: bool = True) -> str:
+    """Write `value` with an SI prefix, e.g. 0.00272 A → "2.720 mA".
+
+    digits: significant digits. zeros: keep trailing zeros, so that columns line up; without them a nominal value
+    reads as it was written ("50 pF").
     Infinite and missing values are written as "∞" and "–".
     """
     if math.isnan(value):
         return "–"
     if math.isinf(value):
         return "∞" if value > 0 else "-∞"
+    if value == 0.0:
+        return f"0 {unit}".rstrip()
     rounded = float(f"{value:.{digits - 1}e}")
-    with Quantity.prefs(map_sf={"u": MICRO, "μ": MICRO}, spacer=" ", strip_zeros=False, strip_radix=True):
-        text = Quantity(rounded, unit).render(prec=digits - 1)
+    text: str = _Figure(rounded, unit).render(prec=digits - 1, strip_zeros=not zeros)
     return text.replace("μ", MICRO).rstrip()
 
 

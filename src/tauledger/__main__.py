@@ -1,0 +1,5 @@
+"""`python -m tauledger`: the command line."""
+
+from tauledger.cli import main
+
+main()

@@ -1,0 +1,56 @@
+"""The review as JSON, document `tauledger.review/1`, and the JSON schema that ships with it."""
+
+from __future__ import annotations
+
+import math
+from typing import Any
+
+import msgspec
+
+from tauledger.record import SCHEMA, PartRow, Review
+
+SCHEMA_FILE = "review.schema.json"
+
+
+def to_json(review: Review) -> bytes:
+    """Give the review as one line of UTF-8 JSON: plain SI numbers, null where there is none, the record's field order.
+
+    Equal reviews give equal bytes. What is not finite becomes null, for JSON has no NaN.
+    """
+    document = msgspec.to_builtins(review)
+    document["parts"] = [_class_for_klass(row) for row in document["parts"]]
+    return msgspec.json.encode(_finite(document)) + b"\n"
+
+
+def schema() -> dict[str, Any]:
+    """Give the JSON schema of the document, from the records themselves.
+
+    It ships as `review.schema.json`; after a change of record.py write it anew with
+    `python -c "from tauledger.report.json import schema_text; print(schema_text(), end='')"`.
+    """
+    found = msgspec.json.schema(Review)
+    parts = found["$defs"][PartRow.__name__]
+    parts["properties"] = _class_for_klass(parts["properties"])
+    parts["required"] = ["class" if name == "klass" else name for name in parts["required"]]
+    found["$defs"][Review.__name__]["properties"]["schema"] = {"const": SCHEMA}
+    return {"$schema": "https://json-schema.org/draft/2020-12/schema", "$id": SCHEMA, **found}
+
+
+def schema_text() -> str:
+    """Give the schema as the text of the file that ships."""
+    return msgspec.json.format(msgspec.json.encode(schema()), indent=1).decode() + "\n"
+
+
+def _class_for_klass(row: dict[str, Any]) -> dict[str, Any]:
+    """`class` is a keyword of Python, hence the record's spelling."""
+    return {"class" if name == "klass" else name: value for name, value in row.items()}
+
+
+def _finite(value: Any) -> Any:
+    if isinstance(value, float):
+        return value if math.isfinite(value) else None
+    if isinstance(value, dict):
+        return {name: _finite(entry) for name, entry in value.items()}
+    if isinstance(value, list | tuple):
+        return [_finite(entry) for entry in value]
+    return value

@@ -1,0 +1,200 @@
+"""Tables and prose laid out as lines of text: what a section says is data until here.
+
+Symbols are spelled (or written in ASCII) before anything is measured, so that columns line up either way.
+"""
+
+from __future__ import annotations
+
+import re
+import unicodedata
+from collections.abc import Iterable, Sequence
+from dataclasses import dataclass
+
+HEADING = "heading"
+STRONG = "strong"
+WARNING = "warning"
+CAUTION = "caution"
+
+_ASCII = {
+    "µ": "u",
+    "μ": "mu",
+    "Ω": "ohm",
+    "π": "pi",
+    "τ": "tau",
+    "σ": "sigma",
+    "Σ": "sum",
+    "β": "beta",
+    "λ": "lambda",
+    "ω": "w",
+    "Δ": "d",
+    "∂": "d",
+    "‖": "||",
+    "∞": "inf",
+    "–": "-",
+    "−": "-",
+    "—": "-",
+    "×": "x",
+    "·": "*",
+    "→": "->",
+    "≤": "<=",
+    "≥": ">=",
+    "≈": "~",
+    "≪": "<<",
+    "±": "+/-",
+    "√": "sqrt",
+    "²": "^2",
+    "⁰": "0",
+    "⁻": "-",
+    "¹": "1",
+    "½": "1/2",
+    "°": " deg",
+    "†": "*",
+    "“": '"',
+    "”": '"',
+    "’": "'",
+    "…": "...",
+}
+_ASCII_TABLE = str.maketrans(_ASCII)
+SYMBOLS = "".join(_ASCII)
+
+_GLUE = "\N{NO-BREAK SPACE}"
+_BEFORE_A_UNIT = re.compile(r"(?<=[\d∞]) (?=(?:%|[fpnuµmkMGT]?(?:Hz|F|Ω|ohm|s|V|A|S|H)|dB|deg)(?!\w))")
+
+
+@dataclass(frozen=True, slots=True)
+class Row:
+    """One row of a table; `style` holds for the whole line."""
+
+    cells: tuple[str, ...]
+    style: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class Table:
+    """Columns that line up. align: one of l, r per column. indent: blanks before each row, the head not."""
+
+    align: str
+    head: tuple[str, ...]
+    rows: tuple[Row, ...]
+    indent: int = 2
+
+
+@dataclass(frozen=True, slots=True)
+class Prose:
+    """Words that wrap. lead: what stands before the first line; the others hang below its end."""
+
+    text: str
+    lead: str = ""
+    style: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class Line:
+    """One laid-out line."""
+
+    text: str
+    style: str = ""
+
+
+Block = Table | Prose
+
+
+@dataclass(frozen=True, slots=True)
+class Section:
+    """Blocks that belong together; major: keeps the empty line before it longest."""
+
+    blocks: tuple[Block, ...]
+    major: bool = False
+
+
+def spell(text: str, *, unicode: bool) -> str:
+    """Write symbols in ASCII where the reader's encoding needs it; what could steer a terminal is shown as `\\x1b`."""
+    visible = "".join(c if c.isprintable() else " " if c.isspace() else ascii(c)[1:-1] for c in text)
+    return visible if unicode else visible.translate(_ASCII_TABLE)
+
+
+def cells(text: str) -> int:
+    """Count the terminal cells that `text` takes."""
+    if text.isascii():
+        return len(text)
+    return sum(0 if unicodedata.combining(c) else 2 if unicodedata.east_asian_width(c) in "WF" else 1 for c in text)
+
+
+def lay_out(sections: Iterable[Section], *, width: int, unicode: bool, page: int) -> list[Line]:
+    """Give the lines of all sections; no line is longer than `width` unless a name is.
+
+    page: lines that should do. Empty lines between sections are spent as far as that allows: before each section, else
+    before the major ones, else none; a report longer than a page anyway has them all.
+    """
+    laid = []
+    for section in sections:
+        lines = [line for block in section.blocks for line in _block(block, width=width, unicode=unicode)]
+        if lines:
+            laid.append((section.major, lines))
+    whole = sum(len(lines) for _, lines in laid)
+    every, major = len(laid) - 1, sum(is_major for is_major, _ in laid[1:])
+    if page < whole + every and whole <= page:
+        spaced = {major_only for major_only in (True,) if whole + major <= page}
+    else:
+        spaced = {True, False}
+    text: list[Line] = []
+    for is_major, lines in laid:
+        if text and is_major in spaced:
+            text.append(Line(""))
+        text.extend(lines)
+    return text
+
+
+def _block(block: Block, *, width: int, unicode: bool) -> list[Line]:
+    if isinstance(block, Table):
+        return _table(block, width=width, unicode=unicode)
+    return _prose(block, width=width, unicode=unicode)
+
+
+def _prose(prose: Prose, *, width: int, unicode: bool) -> list[Line]:
+    """Wrap greedily at blanks; a number is never parted from its unit."""
+    lead = spell(prose.lead, unicode=unicode)
+    words = _BEFORE_A_UNIT.sub(_GLUE, spell(prose.text, unicode=unicode)).split(" ")
+    texts: list[str] = []
+    current, empty = lead, True
+    for word in filter(None, words):
+        candidate = current + word if empty else f"{current} {word}"
+        if not empty and cells(candidate) > width:
+            texts.append(current)
+            candidate = " " * cells(lead) + word
+        current, empty = candidate, False
+    texts.append(current)
+    return [Line(text.replace(_GLUE, " ").rstrip(), prose.style) for text in texts]
+
+
+def _table(table: Table, *, width: int, unicode: bool) -> list[Line]:
+    """Give the first column what the others leave; a longer name gets a line of its own before its numbers."""
+    indent = " " * table.indent
+    rows = [Row(tuple(spell(cell, unicode=unicode) for cell in row.cells), row.style) for row in table.rows]
+    head = tuple(spell(cell, unicode=unicode) for cell in table.head)
+    names = [cells(row.cells[0]) for row in rows] + [cells(head[0]) - table.indent]
+    others = [max([cells(head[k])] + [cells(row.cells[k]) for row in rows]) for k in range(1, len(table.align))]
+    room = {gap: width - table.indent - sum(others) - gap * len(others) for gap in (2, 1)}
+    gap = 2 if max(names) <= room[2] else 1
+    first = max((size for size in names if size <= room[gap]), default=0)
+    lines: list[Line] = []
+    if cells(head[0]) > first + table.indent:
+        lines.append(Line(head[0], HEADING))
+        head = ("", *head[1:])
+    if any(head):
+        lines.append(Line(_join(head, table.align, [first + table.indent, *others], gap), HEADING))
+    for row in rows:
+        numbers = row.cells
+        if cells(row.cells[0]) > first:
+            lines.append(Line(indent + row.cells[0], row.style))
+            numbers = ("", *row.cells[1:])
+        lines.append(Line(indent + _join(numbers, table.align, [first, *others], gap), row.style))
+    return lines
+
+
+def _join(texts: Sequence[str], align: str, widths: Sequence[int], gap: int) -> str:
+    padded = []
+    for text, side, size in zip(texts, align, widths, strict=True):
+        blanks = " " * (size - cells(text))
+        padded.append(text + blanks if side == "l" else blanks + text)
+    return (" " * gap).join(padded).rstrip()

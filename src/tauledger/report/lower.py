@@ -1,0 +1,65 @@
+"""The lower edge: one row per coupling and bypass capacitor, with the zero that it makes."""
+
+from __future__ import annotations
+
+from tauledger.record import LowerBudget, PartRow, Review
+from tauledger.report.layout import Block, Prose, Row, Section, Table
+from tauledger.report.steps import methods, steps_in_line
+from tauledger.report.wording import SOLVED, move, nominal, number, part_title, part_unit, share
+
+_ROWS = 6
+
+
+def lower_edge(review: Review, *, verbose: bool = False) -> Section:
+    """Give R, edge, zero, share and what 10 % less gives, for every short capacitor in the path."""
+    short = [part for part in review.parts if part.klass == "short" and part.kind in ("capacitance", "inductance")]
+    rows = sorted((part for part in short if part.in_path), key=lambda part: -(part.edge_hz or 0.0))
+    blocks: list[Block] = []
+    if rows and review.f_low is not None:
+        shown = rows if verbose else rows[:_ROWS]
+        head = ("LOWER EDGE f_L", "value", "R", "edge", "zero", "share", "10 % less: f_L")
+        table = tuple(_row(part, review.f_low.exact_hz) for part in shown)
+        blocks.append(Table("lrrrrrr", head, table))
+        if len(rows) > len(shown):
+            blocks.append(Prose(f"Not shown: {len(rows) - len(shown)} with lower edges.", lead="  "))
+    blocks.extend(steps_in_line(review, "f_low"))
+    remarks = [_sums(review.budget.lower)] if review.budget.lower and rows else []
+    remarks.append(methods(review, "f_low"))
+    aside = [part_title(part.name, part.owner) for part in short if not part.in_path]
+    if aside:
+        remarks.append(f"{', '.join(aside)} short, not in the signal path")
+    for word, says in (("gain", "sets the mid-band gain"), ("tuned", "resonates, neither short nor open")):
+        named = [part_title(part.name, part.owner) for part in review.parts if part.klass == word]
+        if named:
+            remarks.append(f"{', '.join(named)} {says}")
+    blocks.append(Prose("; ".join(filter(None, remarks)), lead="  "))
+    return Section(tuple(blocks), major=True)
+
+
+def _row(part: PartRow, f_low: float | None) -> Row:
+    less = part.ten_percent_less.f_low_hz
+    change = f" ({move(less / f_low - 1.0)})" if less is not None and f_low else ""
+    ends = " to ".join("ground" if node == "0" else node for node in part.nodes)
+    hand = part.resistance_hand_ohm
+    resistance = number(part.resistance_exact_ohm, "Ω") + SOLVED if hand is None else number(hand, "Ω")
+    zero = "at DC" if part.zero_hz == 0.0 else number(part.zero_hz, "Hz", 3)
+    return Row(
+        (
+            f"{part_title(part.name, part.owner)}, {ends}",
+            nominal(part.value, part_unit(part.kind)),
+            resistance,
+            number(part.edge_hz, "Hz"),
+            zero,
+            share(part.share.f_low),
+            number(less, "Hz") + change,
+        )
+    )
+
+
+def _sums(budget: LowerBudget) -> str:
+    if budget.sum_hz is None:
+        return ""
+    if budget.pole_sum_hz is None or number(budget.sum_hz, "Hz") == number(budget.pole_sum_hz, "Hz"):
+        check = "" if budget.pole_sum_hz is None else " = -Σ p/2π"
+        return f"sum of edges {number(budget.sum_hz, 'Hz')}{check}"
+    return f"sum of edges {number(budget.sum_hz, 'Hz')}, -Σ p/2π {number(budget.pole_sum_hz, 'Hz')}"

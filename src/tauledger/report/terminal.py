@@ -1,0 +1,55 @@
+"""The review as text for a reviewer with two minutes: the largest thing first, at most 80 columns.
+
+Sections are data (summary, upper, steps, lower, poles, reasons); layout.py turns them into lines; colour comes last,
+through rich, and only where it is asked for. Without colour the text is the same, character for character.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+from tauledger.record import Review
+from tauledger.report import lower, poles, reasons, steps, summary, upper
+from tauledger.report.layout import CAUTION, HEADING, STRONG, WARNING, Line, lay_out
+
+_PAGE = 60
+_STYLES = {HEADING: "bold cyan", STRONG: "bold", WARNING: "bold red", CAUTION: "yellow", "": ""}
+
+
+def render(review: Review, *, color: bool, unicode: bool, width: int = 80, verbose: bool = False) -> str:
+    """Give the report as lines of text, each with its line end.
+
+    color: with terminal colours. unicode: with µ, Ω, π, τ, ‖; else u, ohm, pi, tau, ||.
+    verbose: every node, part, pole and zero, and the working of each node.
+    """
+    sections = (
+        reasons.warning(review),
+        summary.headline(review),
+        summary.band(review),
+        summary.operating_points(review),
+        reasons.causes(review),
+        upper.upper_budget(review, verbose=verbose),
+        steps.steps(review, "f_high"),
+        upper.upper_shares(review, verbose=verbose),
+        lower.lower_edge(review, verbose=verbose),
+        poles.poles_and_zeros(review, verbose=verbose),
+        reasons.closing(review),
+    )
+    lines = lay_out(sections, width=width, unicode=unicode, page=_PAGE)
+    return _painted(lines) if color else "".join(f"{line.text}\n" for line in lines)
+
+
+def _painted(lines: Sequence[Line]) -> str:
+    from io import StringIO
+
+    from rich.console import Console
+    from rich.text import Text
+
+    page = StringIO()
+    widest = max(len(line.text) for line in lines) + 1
+    console = Console(
+        file=page, force_terminal=True, color_system="standard", width=2 * widest, legacy_windows=False, no_color=False
+    )
+    for line in lines:
+        console.print(Text(line.text, style=_STYLES[line.style]), soft_wrap=True)
+    return page.getvalue()

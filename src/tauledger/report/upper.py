@@ -1,0 +1,165 @@
+"""The upper edge: the time-constant budget node by node, and whose capacitance sets f_H."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+
+from tauledger.record import CapacitanceTerm, NodeRow, PartRow, Review, UpperBudget, Working
+from tauledger.report.layout import Block, Prose, Row, Section, Table
+from tauledger.report.wording import (
+    NO_NUMBER,
+    SOLVED,
+    fraction,
+    move,
+    nominal,
+    number,
+    part_titles,
+    part_unit,
+    retitled,
+    share,
+)
+
+_PICOFARAD = 1e-12
+_MATTERS = 0.01
+_WORTH_A_ROW = 0.02
+_NODES, _TERMS, _SHARES = 6, 4, 5
+
+
+def upper_budget(review: Review, *, verbose: bool = False) -> Section:
+    """Give per signal node R, C, R·C by hand and exact, and what 1 pF more costs; below it its capacitances."""
+    if not review.nodes:
+        return Section(())
+    titles = part_titles(review.parts)
+    shown = [node for node in review.nodes if verbose or _node_matters(node, review)]
+    hidden = len(review.nodes) - len(shown)
+    if not verbose:
+        hidden += max(len(shown) - _NODES, 0)
+        shown = sorted(shown, key=lambda node: -abs(node.time_constant_s or 0.0))[:_NODES]
+    f_high = review.f_high.exact_hz if review.f_high else None
+    rows: list[Row] = []
+    for node in shown:
+        rows.append(_node_row(node, f_high))
+        if node.working:
+            rows.extend(_term_rows(node, node.working, titles, least=0.0 if verbose else _WORTH_A_ROW * _whole(review)))
+    head = ("UPPER EDGE f_H, by node", "R", "C", "R·C hand", "exact", "+1 pF")
+    blocks: list[Block] = [Table("lrrrrr", head, tuple(rows))]
+    if any(node.working and node.working.source == "solved" for node in shown):
+        blocks.append(Prose("solved exactly: no hand rule fits this node", lead=f"  {SOLVED} "))
+    if review.budget.upper:
+        more = f"; {_count(hidden, 'node')} not shown" if hidden else ""
+        blocks.append(Prose(_sums(review.budget.upper) + more, lead="  sums  "))
+    if verbose:
+        blocks.extend(_workings(shown, review.parts))
+    return Section(tuple(blocks), major=True)
+
+
+def upper_shares(review: Review, *, verbose: bool = False) -> Section:
+    """Give each part's share of f_H and what 10 % less of it gives, recomputed; the rest in one line."""
+    if review.f_high is None:
+        return Section(())
+    with_share = [(part, part.share.f_high) for part in review.parts if part.share.f_high is not None]
+    ordered = sorted(with_share, key=lambda entry: -abs(entry[1]))
+    shown = [e for e in ordered if verbose or abs(e[1]) >= _WORTH_A_ROW][: None if verbose else _SHARES]
+    if not shown:
+        return Section(())
+    titles = part_titles(review.parts)
+    rows = [_share_row(part, value, titles, review.f_high.exact_hz) for part, value in shown]
+    rest = ordered[len(shown) :]
+    if rest:
+        rows.append(Row((f"{_count(len(rest), 'other')} together", "", share(sum(value for _, value in rest)), "")))
+    head = ("WHOSE CAPACITANCE SETS f_H", "value", "share", "10 % less, recomputed: f_H")
+    return Section((Table("lrrr", head, tuple(rows)),))
+
+
+def _node_matters(node: NodeRow, review: Review) -> bool:
+    if not node.in_path:
+        return False
+    return abs(node.share.f_high or 0.0) >= _MATTERS or abs(node.time_constant_s or 0.0) >= _MATTERS * _whole(review)
+
+
+def _whole(review: Review) -> float:
+    """Give the sum of the time constants that count, in s."""
+    return sum(abs(row.time_constant_s or 0.0) for row in review.nodes if row.in_path)
+
+
+def _node_row(node: NodeRow, f_high: float | None) -> Row:
+    solved = SOLVED if node.working and node.working.source == "solved" else ""
+    cost = node.per_farad.f_high
+    return Row(
+        (
+            node.title if node.in_path else f"{node.title}, off path",
+            number(node.resistance_hand_ohm, "Ω") + solved,
+            number(node.capacitance_f, "F"),
+            number(node.time_constant_s, "s"),
+            number(node.time_constant_exact_s, "s"),
+            move(cost * _PICOFARAD / f_high) if cost is not None and f_high else NO_NUMBER,
+        )
+    )
+
+
+def _term_rows(node: NodeRow, working: Working, titles: Mapping[str, str], *, least: float) -> list[Row]:
+    """One row per capacitance that adds at least `least` seconds; what is left of C in one more."""
+    resistance = node.resistance_hand_ohm or 0.0
+    ordered = sorted(working.capacitances, key=lambda term: -abs(term.farad * term.factor))
+    shown = [term for term in ordered if abs(resistance * term.farad * term.factor) >= least][:_TERMS]
+    if not shown:
+        return []
+    rows = [_term_row(term, titles) for term in shown]
+    whole = node.capacitance_f or 0.0
+    rest = whole - sum(term.farad * term.factor for term in shown)
+    if abs(rest) >= _MATTERS * abs(whole):
+        many = len(ordered) - len(shown)
+        what = f"{_count(many, 'smaller one')}" if many else "at its inner nodes"
+        rows.append(Row((f"  {what}", "", number(rest, "F"), "", "", "")))
+    return rows
+
+
+def _term_row(term: CapacitanceTerm, titles: Mapping[str, str]) -> Row:
+    title = titles.get(term.part, term.part)
+    return Row((f"  {title}{_times(term)}", "", number(term.farad * term.factor, "F"), "", "", ""))
+
+
+def _times(term: CapacitanceTerm) -> str:
+    """Show the Miller factor where it is one: " 2.16 pF × 180.1"."""
+    return "" if abs(term.factor - 1.0) < 5e-4 else f" {number(term.farad, 'F', 3)} × {term.factor:.4g}"
+
+
+def _sums(budget: UpperBudget) -> str:
+    path = ""
+    if budget.path_sum_s is not None:
+        edge = 1.0 / (6.283185307179586 * budget.path_sum_s) if budget.path_sum_s > 0.0 else None
+        path = f"R·C {number(budget.path_sum_s, 's')}, 1/(2π·Σ) = {number(edge, 'Hz')}; "
+    weighted = _pair("weighted", budget.weighted_sum_s, "group delay", budget.group_delay_s)
+    every = _pair("all open parts", budget.sum_s, "-Σ 1/p", budget.inverse_pole_sum_s)
+    return f"{path}{weighted}; {every}"
+
+
+def _pair(name: str, value: float, check: str, other: float) -> str:
+    """Write two numbers that must be equal as one where they are, to the digits that are printed."""
+    if number(value, "s") == number(other, "s"):
+        return f"{name} {number(value, 's')} = {check}"
+    return f"{name} {number(value, 's')}, {check} {number(other, 's')}"
+
+
+def _share_row(part: PartRow, value: float, titles: Mapping[str, str], f_high: float | None) -> Row:
+    less = part.ten_percent_less.f_high_hz
+    change = f" ({move(less / f_high - 1.0)})" if less is not None and f_high else ""
+    amount = nominal(part.value, part_unit(part.kind)) if part.owner == part.name else number(part.value, "F", 3)
+    return Row((titles[part.name], amount, share(value), number(less, "Hz") + change))
+
+
+def _workings(nodes: list[NodeRow], parts: tuple[PartRow, ...]) -> list[Block]:
+    blocks: list[Block] = [Prose("Working, node by node:", lead="  ")]
+    for node in nodes:
+        if node.working is None:
+            continue
+        exact = number(node.resistance_exact_ohm, "Ω")
+        loop = "" if node.working.loop_gain is None else f" Loop gain T = {node.working.loop_gain:.4g}."
+        share_text = "" if node.share.f_high is None else f" Share of f_H {fraction(node.share.f_high)}."
+        text = f"{node.working.text} ({node.working.rule}; {node.working.source}; exact {exact}).{loop}{share_text}"
+        blocks.append(Prose(retitled(text, parts), lead="    "))
+    return blocks
+
+
+def _count(many: int, word: str) -> str:
+    return f"{many} {word}" if many == 1 else f"{many} {word}s"

@@ -1,0 +1,119 @@
+"""How the report names things and writes numbers: "C_μ of Q1", "121.9 Hz", "share 64 %"."""
+
+from __future__ import annotations
+
+import math
+import re
+from collections.abc import Iterable, Mapping
+
+from tauledger.quantity import engineering, percent
+from tauledger.record import Owner, PartRow, Review
+
+_UNITS = {"ohm": "Ω"}
+_GREEK = {"pi": "π", "mu": "μ", "tau": "τ", "beta": "β"}
+_RATIOS = ("", "V/V", "A/A")
+_PART_UNIT = {"capacitance": "F", "transcapacitance": "F", "inductance": "H", "C": "F", "L": "H", "R": "Ω"}
+
+EDGE = {"f_high": "f_H", "f_low": "f_L"}
+
+SOLVED = "†"
+NO_NUMBER = "–"
+
+
+def number(value: float | None, unit: str, digits: int = 4) -> str:
+    """Write a number with its unit, at most `digits` significant digits; a dash where there is none."""
+    if value is None:
+        return NO_NUMBER
+    if unit in _RATIOS:
+        return f"{value:.{digits}g} {unit}".rstrip()
+    return engineering(value, _UNITS.get(unit, unit), digits)
+
+
+def nominal(value: float, unit: str) -> str:
+    """Write the value of a part as one would on a schematic: "50 pF", no trailing zeros."""
+    return engineering(value, _UNITS.get(unit, unit), 3 if abs(value) == 0.0 else 4, zeros=False)
+
+
+def part_unit(kind: str) -> str:
+    """Give the unit of a part's value: F, H or Ω."""
+    return _PART_UNIT[kind]
+
+
+def move(fraction: float | None, digits: int = 2) -> str:
+    """Write a change as signed per cent, a dash where there is none."""
+    return NO_NUMBER if fraction is None or not math.isfinite(fraction) else percent(fraction, digits)
+
+
+def fraction(value: float | None) -> str:
+    """Write a share as per cent without a plus sign."""
+    return move(value).removeprefix("+")
+
+
+def share(value: float | None) -> str:
+    """Word a share of a band edge: what lowers f as "64 %", what raises it as "speeds up, 6.0 %"."""
+    if value is not None and value < -5e-5:
+        return f"speeds up, {fraction(-value)}"
+    return fraction(value)
+
+
+def symbol(label: str) -> str:
+    """Write a label as the trade does: c_mu → C_μ, i_c → I_C, r_pi → r_π, f_t → f_T."""
+    head, _, tail = label.partition("_")
+    if not tail:
+        return label
+    tail = _GREEK.get(tail, tail)
+    if head in ("i", "v"):
+        return f"{head.upper()}_{tail.upper()}"
+    if head == "c":
+        return f"C_{tail}"
+    if head == "f":
+        return f"f_{tail.upper()}"
+    return f"{head}_{tail}"
+
+
+def part_title(name: str, owner: str) -> str:
+    """Name a part: a card by itself ("CL"), a device's own as "C_μ of Q1"."""
+    label = name.removeprefix(owner).removeprefix(".")
+    if not label or not name.startswith(owner):
+        return name
+    if label == "cexbc":
+        return f"dQ_be/dV_bc of {owner}"
+    return f"{symbol(label)} of {owner}"
+
+
+def part_titles(parts: Iterable[PartRow]) -> Mapping[str, str]:
+    """Give the title of every part by its name."""
+    return {part.name: part_title(part.name, part.owner) for part in parts}
+
+
+def retitled(text: str, parts: Iterable[PartRow]) -> str:
+    """Write "Q1.c_mu" inside a sentence as the tables do: "C_μ of Q1"."""
+    inner = {part.name: part_title(part.name, part.owner) for part in parts if part.name != part.owner}
+    if not inner:
+        return text
+    names = "|".join(re.escape(name) for name in sorted(inner, key=len, reverse=True))
+    return re.sub(rf"(?<![\w.])(?:{names})(?![\w.])", lambda found: inner[found.group()], text)
+
+
+def owners_text(owners: Iterable[Owner], titles: Mapping[str, str], most: int = 2) -> str:
+    """Say what a pole depends on: "C_μ of Q1 64 %, CL 29 %"; nothing below 10 %."""
+    large = sorted((owner for owner in owners if abs(owner.share) >= 0.1), key=lambda owner: -abs(owner.share))
+    return ", ".join(f"{titles.get(owner.part, owner.part)} {fraction(owner.share)}" for owner in large[:most])
+
+
+def withheld(review: Review) -> str:
+    """Say why tables that rest on hand analysis or the rebuilt network are left out; empty where none is."""
+    if network_rejected(review):
+        return "Left out, for the rebuilt network is not ngspice's: budget, steps, shares, lower edge, poles."
+    if review.midband.from_hz is None:
+        return "Hand tables are left out: without a plateau no capacitor is clearly short or open."
+    return ""
+
+
+AGREEMENT_WARNS = 1e-6
+AGREEMENT_FAILS = 1e-3
+
+
+def network_rejected(review: Review) -> bool:
+    """Whether the rebuilt network differs so much from the sweep that nothing may rest on it."""
+    return review.agreement is not None and not review.agreement.max_relative_error <= AGREEMENT_FAILS
