@@ -34,7 +34,7 @@ NPN = Model(
 PNP = Model("qp", "pnp", 1, NPN.parameters, card=0, path=0)
 
 
-def changed(model: Model, name: str = "", **parameters: float) -> Model:
+def changed(model: Model, name: str = "", /, **parameters: float) -> Model:
     """Give the model with some parameters (folded names) set otherwise, under another name if asked."""
     values = {**dict(model.parameters), **parameters}
     return Model(name or model.name, model.type, model.level, tuple(values.items()), model.card, model.path)

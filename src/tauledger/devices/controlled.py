@@ -16,8 +16,10 @@ def cell_of(part: Part) -> Transconductor | None:
     The shared node is the common one; the sign of gm follows from which ends are shared. A part that senses its own
     two ends is a conductance and no cell.
     """
+    if part.kind != "transconductance":
+        return None
     out_plus, out_minus, control_plus, control_minus = part.nodes
-    if part.kind != "transconductance" or {out_plus, out_minus} == {control_plus, control_minus}:
+    if {out_plus, out_minus} == {control_plus, control_minus}:
         return None
     for output, common, out_sign in ((out_plus, out_minus, 1.0), (out_minus, out_plus, -1.0)):
         for control, reference, control_sign in (
