@@ -1,0 +1,127 @@
+"""The upper time-constant budget: one row per signal node, worked by hand and beside it the exact constant.
+
+A row's time constant is the sum over its nodes of R·C in Miller's picture. The exact constants of all rows add to
+tr(Z·C), the sum −Σ 1/p of the upper network without its inductors.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+
+from tauledger.circuit import GROUND
+from tauledger.devices.family import Device
+from tauledger.hand.equivalent import Capacitor, EquivalentCircuit, upper_circuit
+from tauledger.hand.estimate import InnerLine, LookingIn, Resistance, SignalNode, WorkingSource
+from tauledger.hand.figures import compact, ratio
+from tauledger.hand.looking_in import looking_in
+from tauledger.hand.miller import hand_gain, miller_term
+from tauledger.hand.nodes import Group, Passage, groups, node_name, passages
+from tauledger.network.bands import Bands
+
+ACCEPTED = 0.01
+LEAST_SURE: tuple[WorkingSource, ...] = ("rule", "loop", "branch", "solved")
+
+
+def signal_nodes(bands: Bands, devices: tuple[Device, ...]) -> tuple[SignalNode, ...]:
+    """Give the rows of the upper budget in the order of the file, those off the path included.
+
+    Raises NetworkError where the mid-band circuit has no unique solution.
+    """
+    circuit = upper_circuit(bands, devices)
+    rows = groups(circuit)
+    passed = passages(circuit, rows)
+    return tuple(_row(circuit, row, passed[row.name]) for row in rows)
+
+
+def part_resistances(bands: Bands, devices: tuple[Device, ...]) -> Mapping[str, LookingIn]:
+    """Give the hand resistance in ohm across every open capacitance, by part name.
+
+    Raises NetworkError where the mid-band circuit has no unique solution.
+    """
+    circuit = upper_circuit(bands, devices)
+    seen: dict[str, LookingIn] = {}
+    found: dict[str, LookingIn] = {}
+    for capacitor in circuit.capacitors:
+        pair = (capacitor.a, capacitor.b)
+        key = " ".join(sorted(pair))
+        if key not in seen:
+            seen[key] = resistance_across(circuit, *pair)
+        found[capacitor.part] = seen[key]
+    return found
+
+
+def resistance_across(circuit: EquivalentCircuit, a: str, b: str) -> LookingIn:
+    """Give R_a·(1 − K_ab) + R_b·(1 − K_ba), the resistance in ohm between two nodes by hand; solved where it is off.
+
+    With nothing between them that is R_a + R_b; across a common emitter's C_mu it is R_B·(1 + gm·R_C) + R_C.
+    """
+    if a == b:
+        return LookingIn(0.0, "joined", "both ends at one node", (), "rule")
+    if GROUND in (a, b):
+        node = b if a == GROUND else a
+        return looking_in(circuit, node, node_name(circuit, node))
+    exact = circuit.across(a, b)
+    sides = []
+    for here, there in ((a, b), (b, a)):
+        name = node_name(circuit, here)
+        seen, gain = looking_in(circuit, here, name), hand_gain(circuit, here, there)
+        sides.append((name, seen, gain))
+    ohm = sum(seen.ohm * (1.0 - gain.value) for _, seen, gain in sides)
+    symbols = " + ".join(f"R({name})" if gain.value == 0.0 else f"R({name})·(1 − K)" for name, _, gain in sides)
+    values = " + ".join(
+        compact(seen.ohm) if gain.value == 0.0 else f"{compact(seen.ohm)}·{ratio(1.0 - gain.value)}"
+        for _, seen, gain in sides
+    )
+    source = max((source for _, seen, gain in sides for source in (seen.source, gain.source)), key=LEAST_SURE.index)
+    parts = tuple(Resistance(f"at {name}", seen.ohm * (1.0 - gain.value)) for name, seen, gain in sides)
+    if abs(ohm - exact) > ACCEPTED * abs(exact):
+        text = f"R = {compact(exact)}, solved; {symbols} gives {compact(ohm)}"
+        return LookingIn(exact, "solved", text, parts, "solved", rule_ohm=ohm)
+    lines = [f"R = {symbols} = {values} = {compact(ohm)}"]
+    lines += [seen.text for _, seen, _ in sides]
+    lines += [f"{gain.text} from {name}" for name, _, gain in sides if gain.text]
+    return LookingIn(ohm, "both ends", "; ".join(lines), parts, source)
+
+
+def _row(circuit: EquivalentCircuit, group: Group, passage: Passage) -> SignalNode:
+    lines = [_node_line(circuit, node) for node in group.nodes]
+    carrying = [line for line in lines if line.capacitances] or lines[:1]
+    carrying.sort(key=lambda line: -abs(line.time_constant_s))
+    first = carrying[0]
+    tau = sum(line.time_constant_s for line in lines)
+    return SignalNode(
+        name=group.name,
+        title=group.title,
+        role=group.role,
+        owner=group.owner,
+        members=tuple(member for node in group.nodes for member in circuit.members[node]),
+        crossing=passage.crossing,
+        moment=passage.moment,
+        in_path=passage.in_path,
+        lines=tuple(carrying),
+        resistance_hand_ohm=first.resistance.ohm,
+        resistance_exact_ohm=first.resistance_exact_ohm,
+        capacitance_f=tau / first.resistance.ohm,
+        time_constant_s=tau,
+        time_constant_exact_s=float(sum(circuit.constant[circuit.row[node]] for node in group.nodes)),
+    )
+
+
+def _node_line(circuit: EquivalentCircuit, node: str) -> InnerLine:
+    name = node_name(circuit, node)
+    resistance = looking_in(circuit, node, name)
+    terms = tuple(miller_term(circuit, capacitor, node) for capacitor in circuit.capacitors if _at(capacitor, node))
+    farad = sum(term.farad * term.factor for term in terms)
+    return InnerLine(
+        node=name,
+        resistance=resistance,
+        resistance_exact_ohm=circuit.z(node, node),
+        capacitances=terms,
+        capacitance_f=farad,
+        time_constant_s=resistance.ohm * farad,
+        time_constant_exact_s=float(circuit.constant[circuit.row[node]]),
+    )
+
+
+def _at(capacitor: Capacitor, node: str) -> bool:
+    return node in (capacitor.a, capacitor.b) and capacitor.a != capacitor.b

@@ -1,0 +1,114 @@
+"""The lower edge by hand: per coupling or bypass capacitor the resistance that it faces, all other shorts shorted.
+
+Source of the short-circuit time constants: Gray, Hurst, Lewis and Meyer, Analysis and Design of Analog Integrated
+Circuits, 5th ed., 2009, sec. 7.4.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Mapping
+from dataclasses import replace
+
+import numpy as np
+
+from tauledger.circuit import GROUND
+from tauledger.devices.family import Device
+from tauledger.hand.budget import resistance_across
+from tauledger.hand.equivalent import EquivalentCircuit, equivalent_circuit, joined, joined_nodes
+from tauledger.hand.estimate import LowerRow
+from tauledger.hand.nodes import node_title
+from tauledger.network.bands import Bands
+from tauledger.network.solve import response
+
+WEIGHT_IN_PATH = 0.05
+EDGE_IN_PATH = 0.02
+BLOCKS = 1e-6
+
+
+def lower_rows(bands: Bands, devices: tuple[Device, ...]) -> tuple[LowerRow, ...]:
+    """Give one row per short capacitor, parallel ones taken together, in the order of the file.
+
+    Hand: the resistance across it by looking-in rules, edge 1/(2π·R·C). zero_hz = f_k·H(open)/H(short) is the zero that
+    it makes alone. A row counts if 1 − H(open)/H(short) is at least 5 %, or its part of Σ f_k·(1 − H(open)/H(short)) is
+    at least 2 %: supply decoupling does not. Capacitors with both ends at one node make no row.
+    Raises NetworkError where the mid-band circuit has no unique solution.
+    """
+    network = bands.network
+    shorts = [p for p in network.parts if p.kind == "capacitance" and bands.class_of[p.name] == "short" and p.value]
+    opens = {p.name for p in network.parts if p.kind in ("capacitance", "transcapacitance") and p not in shorts}
+    chokes = {p.name for p in network.parts if p.kind == "inductance" and bands.class_of[p.name] == "open"}
+    direct = _direct_nodes(bands)
+    groups: dict[tuple[str, ...], list[str]] = {}
+    for part in shorts:
+        ends = tuple(sorted(direct[node] for node in part.nodes))
+        if ends[0] != ends[1]:
+            groups.setdefault(ends, []).append(part.name)
+    farad = {part.name: part.value for part in shorts}
+    all_shorts = {part.name for part in shorts}
+    found: list[tuple[LowerRow, float]] = []
+    for ends, names in groups.items():
+        smaller, merged = joined(network, all_shorts - {*names}, {*names, *opens, *chokes})
+        circuit = equivalent_circuit(smaller, merged, devices, network)
+        a, b = (circuit.at[node] for node in ends)
+        if a == b:
+            continue
+        found.append(_row(bands, circuit, (a, b), tuple(names), sum(farad[name] for name in names)))
+    scale = sum(abs(weight * row.edge_exact_hz) for row, weight in found)
+    return tuple(_judged(row, weight, scale) for row, weight in found)
+
+
+def _row(
+    bands: Bands, circuit: EquivalentCircuit, ends: tuple[str, str], names: tuple[str, ...], farad: float
+) -> tuple[LowerRow, float]:
+    """Give the row, not yet judged, and its weight 1 − H(open)/H(short)."""
+    seen = resistance_across(circuit, *ends)
+    exact = circuit.across(*ends)
+    edge = _edge(exact, farad)
+    passed = _gain_left(bands, circuit)
+    row = LowerRow(
+        parts=names,
+        title=_title(circuit, ends, passed),
+        farad=farad,
+        resistance=seen,
+        resistance_exact_ohm=exact,
+        edge_hand_hz=_edge(seen.ohm, farad),
+        edge_exact_hz=edge,
+        zero_hz=edge * passed,
+        in_path=True,
+    )
+    return row, 1.0 - passed
+
+
+def _judged(row: LowerRow, weight: float, scale: float) -> LowerRow:
+    part = abs(weight * row.edge_exact_hz) / scale if scale else 0.0
+    if abs(weight) >= WEIGHT_IN_PATH or part >= EDGE_IN_PATH:
+        return row
+    where = row.title.partition(" ")[2]
+    return replace(row, title=f"decoupling {where}", in_path=False)
+
+
+def _gain_left(bands: Bands, circuit: EquivalentCircuit) -> float:
+    """Give H(open)/H(short): the part of the mid-band gain that is left with the capacitor open."""
+    short = complex(response(bands.upper, np.zeros(1))[0])
+    left = float((circuit.response / short).real)
+    return 0.0 if abs(left) < BLOCKS else left
+
+
+def _title(circuit: EquivalentCircuit, ends: tuple[str, str], passed: float) -> str:
+    """Say "bypass at emitter of Q1 (e)" or "coupling into base of Q1 (b)": into the end that rests when it is open."""
+    live = [node for node in ends if node != GROUND]
+    still = min(live, key=lambda node: abs(circuit.voltage[circuit.row[node]]))
+    return f"{'coupling into' if passed == 0.0 else 'bypass at'} {node_title(circuit, still)}"
+
+
+def _direct_nodes(bands: Bands) -> Mapping[str, str]:
+    """Give every node's group with nothing joined but sources and short inductors."""
+    network = bands.network
+    joins = {p.name for p in network.parts if p.kind == "inductance" and bands.class_of[p.name] != "open"}
+    joins |= {p.name for p in network.parts if p.kind == "voltage source" and not network.amplitude(p)}
+    return joined_nodes(network, joins)
+
+
+def _edge(ohm: float, farad: float) -> float:
+    return 0.0 if math.isinf(ohm) or not ohm else 1.0 / (2.0 * math.pi * ohm * farad)

@@ -1,0 +1,221 @@
+"""Miller's split: a capacitance between two nodes counts as C·(1 − K) at each, K the gain driven from that node.
+
+K comes from the node itself and never from the two signal voltages: at a common base those would give thousands. Where
+the gain from the other end to this one is −1 or beyond, the textbook's 1 + 1/|A| stands in place of 1 − K.
+
+Source: Miller, "Dependence of the input impedance of a three-electrode vacuum tube upon the load in the plate circuit",
+Scientific Papers of the Bureau of Standards 15(351), 1920; both sides: Gray, Hurst, Lewis and Meyer, 5th ed., 2009,
+sec. 7.2.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterator
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from tauledger.circuit import GROUND
+from tauledger.hand.equivalent import Capacitor, Cell, EquivalentCircuit
+from tauledger.hand.estimate import MillerTerm, WorkingSource
+from tauledger.hand.figures import compact, ratio
+from tauledger.hand.looking_in import Element, Seen, Walk, outside
+from tauledger.hand.rules.rule import parallel
+
+ACCEPTED = 0.01
+LONGEST_CHAIN = 4
+NOT_PRINTED = 0.001
+TEXTBOOK_BELOW = -1.0
+
+
+@dataclass(frozen=True, slots=True)
+class HandGain:
+    """K from a node to another: the value used, the line that gives it, and whether it was solved."""
+
+    value: float
+    text: str
+    source: WorkingSource
+
+
+@dataclass(frozen=True, slots=True)
+class _Hop:
+    element: Element
+    start: str
+    end: str
+
+
+def hand_gain(circuit: EquivalentCircuit, start: str, end: str) -> HandGain:
+    """Give K = v(end)/v(start) with `start` driven, by hand; solved where 1 − K misses the exact value by over 1 %."""
+    if end == GROUND:
+        return HandGain(0.0, "", "rule")
+    if start == end:
+        return HandGain(1.0, "", "rule")
+    exact = circuit.gain(start, end)
+    for chain in _chains(circuit, start, end):
+        value, text = _along(circuit, start, chain)
+        if abs(value - exact) <= ACCEPTED * abs(1.0 - exact):
+            return HandGain(value, text, "rule")
+    if abs(exact) <= ACCEPTED * abs(1.0 - exact):
+        return HandGain(0.0, "", "rule")
+    return HandGain(exact, f"K = {ratio(exact)}, solved", "solved")
+
+
+def miller_term(circuit: EquivalentCircuit, capacitor: Capacitor, node: str) -> MillerTerm:
+    """Count one capacitance at one of its nodes: farad·(1 − K), or farad·(1 + 1/|A|) behind an inverting stage.
+
+    Keeps the sign: a gain above 1 makes the capacitance negative.
+    """
+    far = capacitor.b if node == capacitor.a else capacitor.a
+    here = hand_gain(circuit, node, far)
+    if far == GROUND:
+        return MillerTerm(capacitor.part, capacitor.farad, 1.0, 0j)
+    back = hand_gain(circuit, far, node)
+    if back.value <= TEXTBOOK_BELOW and back.value < here.value:
+        a = -back.value
+        text = f"1 + 1/|A| = 1 + 1/{ratio(a)} = {ratio(1.0 + 1.0 / a)}"
+        return MillerTerm(capacitor.part, capacitor.farad, 1.0 + 1.0 / a, complex(-1.0 / a), text, back.source)
+    k = here.value
+    return MillerTerm(capacitor.part, capacitor.farad, 1.0 - k, complex(k), here.text, here.source)
+
+
+def _chains(circuit: EquivalentCircuit, start: str, end: str) -> Iterator[tuple[_Hop, ...]]:
+    """Give the simple paths from start to end, the shortest first."""
+    level: list[tuple[_Hop, ...]] = [()]
+    for _ in range(LONGEST_CHAIN):
+        longer: list[tuple[_Hop, ...]] = []
+        for chain in level:
+            node = chain[-1].end if chain else start
+            visited = {start, *(hop.end for hop in chain)}
+            for hop in _hops(circuit, node):
+                if hop.end in visited or hop.end == GROUND:
+                    continue
+                if hop.end == end:
+                    yield (*chain, hop)
+                else:
+                    longer.append((*chain, hop))
+        level = longer
+
+
+def _hops(circuit: EquivalentCircuit, node: str) -> Iterator[_Hop]:
+    for k in circuit.cells_at.get(node, ()):
+        cell = circuit.cells[k]
+        for end in dict.fromkeys((cell.output, cell.common, cell.control)):
+            if end != node:
+                yield _Hop(("Q", k), node, end)
+    for k in circuit.resistors_at.get(node, ()):
+        yield _Hop(("R", k), node, circuit.resistors[k].other(node))
+
+
+def _along(circuit: EquivalentCircuit, start: str, chain: tuple[_Hop, ...]) -> tuple[float, str]:
+    """Multiply the gains of the hops; every node passed is driven, so it ends a branch like ground."""
+    value, lines = 1.0, []
+    driven = {GROUND, start}
+    for hop in chain:
+        walk = Walk(ends=frozenset(driven))
+        kind, k = hop.element
+        if kind == "R":
+            factor, line = _through_resistor(circuit, k, hop, walk)
+        else:
+            factor, line = _through_cell(circuit, k, hop, walk)
+        if walk.left < 0:
+            return math.nan, ""
+        value *= factor
+        lines.append(line)
+        driven.add(hop.end)
+    if value == 0.0:
+        return value, ""
+    if len(lines) == 1:
+        return value, f"K = {lines[0]}"
+    return value, f"K = {' · '.join(f'({line})' for line in lines)} = {ratio(value)}"
+
+
+def _through_resistor(circuit: EquivalentCircuit, k: int, hop: _Hop, walk: Walk) -> tuple[float, str]:
+    resistor = circuit.resistors[k]
+    load = outside(circuit, hop.end, frozenset({hop.element}), walk)
+    share = 1.0 if math.isinf(load.ohm) else load.ohm / (load.ohm + resistor.ohm)
+    text = f"R/(R + {resistor.name}) = {compact(load.ohm)}/{compact(load.ohm + resistor.ohm)} = {ratio(share)}"
+    return share, text
+
+
+def _through_cell(circuit: EquivalentCircuit, k: int, hop: _Hop, walk: Walk) -> tuple[float, str]:
+    """Solve the cell with one node driven at 1 V and the others loaded by what they see without it."""
+    cell = circuit.cells[k]
+    without = frozenset({hop.element})
+    free = [n for n in dict.fromkeys((cell.control, cell.common, cell.output)) if n not in walk.ends and n != hop.start]
+    load = {node: outside(circuit, node, without, walk) for node in free}
+    voltage = {hop.start: 1.0, **_cell_voltages(cell, hop.start, load)}
+    value = voltage.get(hop.end, 0.0)
+    return value, _cell_text(cell, hop, load, value)
+
+
+def _cell_voltages(cell: Cell, driven: str, load: dict[str, Seen]) -> dict[str, float]:
+    """Solve the nodal equations of one cell at its free nodes; ground and every other node are at 0 V."""
+    nodes = [driven, *load]
+    row = {node: k for k, node in enumerate(nodes)}
+    y = np.zeros((len(nodes), len(nodes)))
+    stamps = [
+        (cell.output, cell.common, cell.control, cell.common, cell.gm),
+        (cell.output, cell.common, GROUND, cell.common, cell.body_gm),
+        (cell.output, cell.common, cell.output, cell.common, 1.0 / cell.r_o),
+        (cell.control, cell.common, cell.control, cell.common, 1.0 / cell.r_pi),
+        *((node, GROUND, node, GROUND, 1.0 / seen.ohm) for node, seen in load.items() if seen.ohm),
+    ]
+    for p, m, cp, cm, value in stamps:
+        for out, out_sign in ((p, 1.0), (m, -1.0)):
+            for control, sign in ((cp, 1.0), (cm, -1.0)):
+                if out in row and control in row:
+                    y[row[out], row[control]] += out_sign * sign * value
+    live = [row[node] for node, seen in load.items() if seen.ohm]
+    if not live:
+        return dict.fromkeys(load, 0.0)
+    try:
+        solved = np.linalg.solve(y[np.ix_(live, live)], -y[live, 0])
+    except np.linalg.LinAlgError:
+        # A node that only a controlled current feeds has no voltage of its own: no hand gain.
+        return dict.fromkeys(load, math.nan)
+    return {**dict.fromkeys(load, 0.0), **{nodes[k]: float(v) for k, v in zip(live, solved, strict=True)}}
+
+
+def _cell_text(cell: Cell, hop: _Hop, load: dict[str, Seen], value: float) -> str:
+    """Write the gain of a cell with the textbook's formula where that is within 1 % on 1 − K."""
+    words = dict(zip((cell.control, cell.common, cell.output), cell.words, strict=True))
+    r_c, r_e = load.get(cell.output, Seen(0.0, "0")), load.get(cell.common, Seen(0.0, "0"))
+    into_r_o = _beside(r_c, cell)
+    gm, result = compact(cell.gm), ratio(value)
+    tried: tuple[float, str] | None = None
+    if value == 0.0:
+        return ""
+    if (hop.start, hop.end) == (cell.control, cell.output):
+        if r_e.ohm == 0.0:
+            k = -cell.gm * into_r_o.ohm
+            tried = k, f"−gm·{_bracketed(into_r_o)} = {compact(-cell.gm)}·{compact(into_r_o.ohm)} = {result}"
+        else:
+            k = -cell.gm * r_c.ohm / (1.0 + cell.gm * r_e.ohm)
+            degenerated = f"(1 + {gm}·{compact(r_e.ohm)})"
+            tried = k, f"−gm·R_C/(1 + gm·R_E) = {compact(-cell.gm)}·{compact(r_c.ohm)}/{degenerated} ≈ {result}"
+    elif (hop.start, hop.end) == (cell.control, cell.common):
+        product = cell.gm * parallel(r_e.ohm, cell.r_o)
+        text = f"gm·R_E/(1 + gm·R_E) = {ratio(product)}/{ratio(1.0 + product)} ≈ {result}"
+        tried = product / (1.0 + product), text
+    elif (hop.start, hop.end) == (cell.common, cell.output):
+        k = (cell.gm + cell.body_gm) * into_r_o.ohm
+        tried = k, f"gm·{_bracketed(into_r_o)} = {compact(cell.gm + cell.body_gm)}·{compact(into_r_o.ohm)} ≈ {result}"
+    if tried is not None and abs(tried[0] - value) <= ACCEPTED * abs(1.0 - value):
+        return tried[1]
+    seen = ", ".join(f"R({words[node]}) = {compact(s.ohm)}" for node, s in load.items() if s.ohm)
+    given = f" with {seen}" if seen else ""
+    return f"{cell.owner} from {words[hop.start]} to {words[hop.end]} = {result}{given}"
+
+
+def _beside(load: Seen, cell: Cell) -> Seen:
+    ohm = parallel(load.ohm, cell.r_o)
+    if math.isinf(load.ohm):
+        return Seen(ohm, "r_o")
+    if math.isinf(cell.r_o) or load.ohm < NOT_PRINTED * cell.r_o:
+        return replace(load, ohm=ohm)
+    return Seen(ohm, f"{load.symbol} ‖ r_o", load.terms + 1)
+
+
+def _bracketed(seen: Seen) -> str:
+    return seen.symbol if seen.terms == 1 else f"({seen.symbol})"

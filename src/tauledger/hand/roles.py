@@ -1,0 +1,60 @@
+"""What a transistor does in its circuit: which terminal the signal enters, and which it leaves by."""
+
+from __future__ import annotations
+
+from tauledger.circuit import GROUND
+from tauledger.hand.equivalent import Cell, EquivalentCircuit
+
+IDLE = 1e-3
+FOLLOWS = 0.05
+
+# Words by the cell's own terminals: common terminal shared, degenerated, signal into the common terminal, follower.
+ROLES = {
+    "base": ("common emitter", "common emitter, degenerated", "common base", "emitter follower (common collector)"),
+    "gate": ("common source", "common source, degenerated", "common gate", "source follower (common drain)"),
+    "input": ("transconductor", "transconductor, degenerated", "current follower", "voltage follower"),
+}
+
+
+def role_of(circuit: EquivalentCircuit, cell: Cell) -> str:
+    """Name the role of one cell at mid-band from its node voltages x and the adjoint λ of the output.
+
+    Diode-connected where control and output are one node. Without signal where gm·(v_control − v_common) moves the
+    output by less than 0.1 %. The signal enters by the control or the common node, whichever moves more, and leaves by
+    the output or the common node, whichever the circuit's output follows more. Degenerated: the common node, entered by
+    the control, moves by more than 5 % of it.
+    """
+    if cell.diode_connected:
+        return "diode-connected"
+    left_at = leaves_at(circuit, cell)
+    if left_at is None:
+        return "without signal"
+    shared, degenerated, into_common, follower = ROLES.get(cell.words[0], ROLES["input"])
+    v_control, v_common = _at(circuit, cell.control), _at(circuit, cell.common)
+    if abs(v_common) > abs(v_control):
+        return into_common
+    if left_at == cell.common:
+        return follower
+    if any(other.diode_connected and other.control == cell.control for other in circuit.cells):
+        return "current mirror output"
+    return degenerated if abs(v_common) > FOLLOWS * abs(v_control) else shared
+
+
+def leaves_at(circuit: EquivalentCircuit, cell: Cell) -> str | None:
+    """Give the node by which the signal leaves a cell, output or common, whichever the circuit's output follows more.
+
+    None where gm·(v_control − v_common) moves the circuit's output by less than 0.1 %.
+    """
+    v = _at(circuit, cell.control) - _at(circuit, cell.common)
+    to_output, to_common = _adjoint(circuit, cell.output), _adjoint(circuit, cell.common)
+    if abs(cell.gm * v * (to_output - to_common)) < IDLE * abs(circuit.response):
+        return None
+    return cell.common if abs(to_common) > abs(to_output) else cell.output
+
+
+def _at(circuit: EquivalentCircuit, node: str) -> complex:
+    return 0j if node == GROUND else complex(circuit.voltage[circuit.row[node]])
+
+
+def _adjoint(circuit: EquivalentCircuit, node: str) -> complex:
+    return 0j if node == GROUND else complex(circuit.adjoint[circuit.row[node]])

@@ -1,0 +1,100 @@
+"""The chain of stages: the nodes that all signal crosses, in signal order, with hand and exact gain between them."""
+
+from __future__ import annotations
+
+from functools import cmp_to_key
+
+from tauledger.devices.family import Device
+from tauledger.hand.equivalent import Cell, EquivalentCircuit, upper_circuit
+from tauledger.hand.estimate import StageRow
+from tauledger.hand.looking_in import looking_in
+from tauledger.hand.miller import hand_gain
+from tauledger.hand.nodes import Group, crossing, groups, node_name
+from tauledger.hand.roles import leaves_at, role_of
+from tauledger.network.bands import Bands
+
+CROSSED_BY_ALL = (0.9, 1.1)
+PART_OF_A_STAGE = 0.001
+
+
+def stage_rows(bands: Bands, devices: tuple[Device, ...]) -> tuple[StageRow, ...]:
+    """List the signal nodes with 0.9 < ρ < 1.1 in signal order.
+
+    gain_exact is the voltage ratio to the node before, gain_hand the hand gain driven from that node; for the first
+    node both count from the source: V/V where one voltage source drives, ohm where one current source does, None where
+    several do. Raises NetworkError where the mid-band circuit has no unique solution.
+    """
+    circuit = upper_circuit(bands, devices)
+    crossed = [
+        group for group in groups(circuit) if CROSSED_BY_ALL[0] < crossing(circuit, group.nodes[0]) < CROSSED_BY_ALL[1]
+    ]
+
+    def order(a: Group, b: Group) -> int:
+        return _order(circuit, a.nodes[0], b.nodes[0])
+
+    ordered = sorted(crossed, key=cmp_to_key(order))
+    rows: list[StageRow] = []
+    before: str | None = None
+    for group in ordered:
+        node = group.nodes[0]
+        if before is None:
+            by_hand, exact = _from_source(bands, circuit, node)
+        else:
+            exact = _ratio(circuit, before, node)
+            by_hand = hand_gain(circuit, before, node).value
+        cell = _source_cell(circuit, group, before)
+        rows.append(
+            StageRow(
+                node=group.name,
+                title=group.title,
+                role=role_of(circuit, cell) if cell is not None else "passive",
+                owner=cell.owner if cell is not None else "",
+                gain_hand=by_hand,
+                gain_exact=exact,
+                elements=_elements(circuit, node),
+            )
+        )
+        before = node
+    return tuple(rows)
+
+
+def _order(circuit: EquivalentCircuit, a: str, b: str) -> int:
+    """Order two nodes that all signal crosses: driven from the earlier one alone, the later one moves as it does."""
+    forward = abs(circuit.gain(a, b) / _ratio(circuit, a, b) - 1.0)
+    backward = abs(circuit.gain(b, a) / _ratio(circuit, b, a) - 1.0)
+    return -1 if forward < backward else 1
+
+
+def _ratio(circuit: EquivalentCircuit, before: str, node: str) -> float:
+    return float((circuit.voltage[circuit.row[node]] / circuit.voltage[circuit.row[before]]).real)
+
+
+def _from_source(bands: Bands, circuit: EquivalentCircuit, node: str) -> tuple[float | None, float | None]:
+    """Give hand and exact gain from the source, by the Norton current that it forces into the first node."""
+    driven = [amplitude for amplitude in bands.network.amplitudes.values() if amplitude]
+    if len(driven) != 1:
+        return None, None
+    k = circuit.row[node]
+    exact = float((circuit.voltage[k] / driven[0]).real)
+    seen = looking_in(circuit, node, node_name(circuit, node)).ohm
+    return float((circuit.injected[k] * seen / driven[0]).real) or None, exact
+
+
+def _source_cell(circuit: EquivalentCircuit, group: Group, before: str | None) -> Cell | None:
+    """Find the cell that brings the signal to a row: it leaves there, and enters at the row before if one does."""
+    at = dict.fromkeys(k for node in group.nodes for k in circuit.cells_at.get(node, ()))
+    leaving = [
+        cell
+        for cell in (circuit.cells[k] for k in at)
+        if not cell.diode_connected and leaves_at(circuit, cell) in group.nodes
+    ]
+    near = [cell for cell in leaving if before in (cell.control, cell.common)]
+    return next(iter(near or leaving), None)
+
+
+def _elements(circuit: EquivalentCircuit, node: str) -> tuple[str, ...]:
+    """Name the resistors and cells at a node that carry more than 0.1 % of its conductance."""
+    least = PART_OF_A_STAGE / circuit.z(node, node)
+    resistors = [circuit.resistors[k] for k in circuit.resistors_at.get(node, ())]
+    cells = [circuit.cells[k].owner for k in circuit.cells_at.get(node, ())]
+    return (*dict.fromkeys([r.name for r in resistors if 1.0 / r.ohm >= least] + cells),)
