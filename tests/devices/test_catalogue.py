@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from boards import board, preamp
+from circuits import board, preamp
 from tauledger.devices.catalogue import FAMILIES, family_of, linearise, observations
 from tauledger.devices.passives import passive_part
 from tauledger.engine.client import Engine

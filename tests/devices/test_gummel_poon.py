@@ -7,7 +7,7 @@ from dataclasses import replace
 import numpy as np
 import pytest
 
-from boards import NPN, PNP, board, changed
+from circuits import NPN, PNP, board, changed
 from tauledger.circuit import Circuit, Model
 from tauledger.devices.catalogue import linearise, observations
 from tauledger.devices.family import Device

@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
-from boards import board
+from circuits import board
 from tauledger.circuit import Circuit, Port
 from tauledger.devices.catalogue import linearise, observations
 from tauledger.devices.controlled import cell_of

@@ -15,7 +15,7 @@ import numpy as np
 import pytest
 
 import tauledger.engine
-from boards import board, preamp
+from circuits import board, preamp
 from tauledger.circuit import Port
 from tauledger.devices.catalogue import observations
 from tauledger.engine import deck
@@ -217,7 +217,7 @@ def test_an_unused_engine_closes_at_once_and_leaves_nothing(private_tmp: Path) -
 ORPHAN = """
 import os, sys, tempfile
 tempfile.tempdir = sys.argv[1]
-from boards import board
+from circuits import board
 from tauledger.engine.client import start_engine
 engine = start_engine()
 engine.bias(board("V1 in 0 5", "R1 in out 1k", "C1 out 0 1n"), ())

@@ -9,7 +9,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from boards import NPN, board, changed, preamp
+from circuits import NPN, board, changed, preamp
 from tauledger.engine.deck import write_deck
 from tauledger.errors import EngineError
 

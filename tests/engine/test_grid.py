@@ -6,7 +6,7 @@ import numpy as np
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from boards import board
+from circuits import board
 from tauledger.devices.catalogue import observations
 from tauledger.engine.client import Engine
 from tauledger.engine.grid import decades, plan

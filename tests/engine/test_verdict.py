@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import pytest
 
-from boards import preamp
+from circuits import preamp
 from tauledger.engine.deck import write_deck
 from tauledger.engine.verdict import judge, translate
 

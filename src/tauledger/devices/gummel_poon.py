@@ -139,7 +139,7 @@ def _linearise(circuit: Circuit, element: Element, bias: Bias) -> Device:
         transcapacitance(name, (bi, ei), (bi, ci), read["cexbc"], "cexbc"),
     )
     kept = tuple(part for part in parts if part.value != 0.0 and not _shorted(part))
-    v = dict(zip(circuit.nodes, bias.voltages.tolist(), strict=True))
+    v_ce = float(bias.voltages[element.nodes[0]] - bias.voltages[element.nodes[2]])
     terminals = [Terminal("collector", c, ci), Terminal("base", b, bi), Terminal("emitter", e, ei)]
     if len(element.nodes) > 3:
         terminals.append(Terminal("substrate", s, s))
@@ -147,7 +147,7 @@ def _linearise(circuit: Circuit, element: Element, bias: Bias) -> Device:
         name=name,
         kind=model.type,
         region=region_of(read["vbe"], read["vbc"], read["temp"]),
-        figures=_figures(read, v[c] - v[e]),
+        figures=_figures(read, v_ce),
         terminals=tuple(terminals),
         cell=Transconductor(name, bi, ei, ci, gm, _inverse(g_pi), _inverse(g_o)) if gm else None,
         parts=kept,
