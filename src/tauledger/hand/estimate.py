@@ -21,12 +21,18 @@ class Resistance:
 
 @dataclass(frozen=True, slots=True)
 class MillerTerm:
-    """One capacitance at a node: it counts as farad·factor there; `gain` is K from this node to its other end."""
+    """One capacitance at a node: it counts as farad·factor there; `gain` is K from this node to its other end.
+
+    text: the line for K as written on paper, empty where the other end is at AC ground. source: "rule", or "solved"
+    where the hand gain misses 1 − K by more than 1 %.
+    """
 
     part: str
     farad: float
     factor: float
     gain: complex
+    text: str = ""
+    source: WorkingSource = "rule"
 
 
 @dataclass(frozen=True, slots=True)
