@@ -20,6 +20,7 @@ from tauledger.errors import NetworkError
 from tauledger.network.assemble import Network
 from tauledger.network.bands import BandClass, Bands, joined_nodes, midband_network, midband_nodes
 from tauledger.network.constants import inverse
+from tauledger.network.reactances import reactances
 from tauledger.network.spectrum import pole_frequencies
 
 IN_PATH_WEIGHT = 0.05
@@ -48,7 +49,10 @@ class ShortConstant:
 
 @dataclass(frozen=True, slots=True)
 class ShortConstants:
-    """The ledger of the lower network: Σ f_k and −Σ p/2π in Hz, both None where capacitors alone form a loop."""
+    """The ledger of the lower network: sum_hz = Σ f_k, pole_sum_hz = −Σ p/2π.
+
+    Both None where capacitors alone form a loop, and where a tuned part belongs to neither side.
+    """
 
     parts: tuple[ShortConstant, ...]
     sum_hz: float | None
@@ -80,7 +84,8 @@ def short_constants(bands: Bands) -> ShortConstants:
         for group, (ohm, edge, left) in zip(groups, facts, strict=True)
     )
     edges = [row.edge_hz for row in rows]
-    if not np.all(np.isfinite(edges)):
+    listed = {name for row in rows for name in row.names}
+    if not np.all(np.isfinite(edges)) or {part.name for part in reactances(bands.lower).parts} != listed:
         return ShortConstants(rows, None, None)
     poles = pole_frequencies(bands.lower)
     return ShortConstants(rows, float(sum(edges)), float(-np.sum(poles).real / (2.0 * np.pi)))

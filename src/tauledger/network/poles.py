@@ -14,13 +14,15 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from tauledger.errors import NetworkError
 from tauledger.network.assemble import Network
 from tauledger.network.reactances import reactances
-from tauledger.network.solve import Complex, Real
+from tauledger.network.solve import Complex, admittance
 from tauledger.network.spectrum import pole_frequencies, zero_frequencies
 
 CANCEL_WITHIN = 0.02
 DEFECTIVE = 1e-6
+BESIDE = 1e-9
 
 
 @dataclass(frozen=True, slots=True)
@@ -101,34 +103,38 @@ def pole_owners(network: Network, poles: Complex) -> tuple[dict[str, float], ...
     Empty for poles at the origin and for multiple poles.
     """
     terms = reactances(network)
-    g = network.conductance.dense(network.size)
-    c = network.capacitance.dense(network.size)
-    result = []
-    for p in poles:
-        share = _taken(g, c, complex(p), terms.out, terms.control, terms.value) if p != 0.0 else None
-        result.append({} if share is None else dict(zip(terms.names, share.tolist(), strict=True)))
+    result: list[dict[str, float]] = [{} for _ in poles]
+    moving = np.flatnonzero(poles != 0.0)
+    if not len(moving):
+        return tuple(result)
+    right, left = _eigenvectors(network, poles[moving])
+    taken = terms.value * (left @ terms.out) * (right @ terms.control)
+    whole = np.sum(taken, axis=1)
+    simple = np.abs(whole) > DEFECTIVE * np.sum(np.abs(taken), axis=1)
+    for k in np.flatnonzero(simple):
+        result[moving[k]] = dict(zip(terms.names, (taken[k] / whole[k]).real.tolist(), strict=True))
     return tuple(result)
 
 
-def _taken(g: Real, c: Real, p: complex, out: Real, control: Real, value: Real) -> Real | None:
-    """Give the parts' shares in one pole by inverse iteration on both sides; None where the pole is not simple."""
-    y = g + p * (1.0 + 1e-9) * c
+def _eigenvectors(network: Network, poles: Complex) -> tuple[Complex, Complex]:
+    """Give right and left eigenvectors of the pencil at its natural frequencies, (k, n) each, by inverse iteration."""
+    c = network.capacitance.dense(network.size)
+    # just beside the pole, so that the matrix keeps an inverse when the pole is exact
+    y = admittance(network, poles * (1.0 + BESIDE))
+    right = left = np.ones((len(poles), network.size), dtype=complex)
     try:
-        v = w = np.ones(len(g), dtype=complex)
         for _ in range(3):
-            v = np.linalg.solve(y, c @ v)
-            w = np.linalg.solve(y.T, c.T @ w)
-            v, w = v / np.linalg.norm(v), w / np.linalg.norm(w)
-    except np.linalg.LinAlgError:
-        return None
-    taken = value * (w @ out) * (v @ control)
-    whole = complex(w @ c @ v)
-    if abs(whole) < DEFECTIVE * float(np.sum(np.abs(taken))):
-        return None
-    return np.asarray((taken / whole).real, dtype=np.float64)
+            right = np.linalg.solve(y, (right @ c.T)[..., None])[..., 0]
+            left = np.linalg.solve(y.transpose(0, 2, 1), (left @ c)[..., None])[..., 0]
+            right = right / np.linalg.norm(right, axis=1, keepdims=True)
+            left = left / np.linalg.norm(left, axis=1, keepdims=True)
+    except np.linalg.LinAlgError as error:
+        raise NetworkError("the small-signal network has no unique solution") from error
+    return right, left
 
 
 def _pole(s: complex, owners: Mapping[str, float], cancelled: bool) -> Pole:
     if s.imag == 0.0:
         return Pole(s, owners, cancelled)
-    return Pole(s, owners, cancelled, abs(s) / (2.0 * np.pi), abs(s) / (-2.0 * s.real))
+    q = abs(s) / (-2.0 * s.real) if s.real else float("inf")
+    return Pole(s, owners, cancelled, abs(s) / (2.0 * np.pi), q)
