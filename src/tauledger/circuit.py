@@ -15,6 +15,9 @@ from numpy.typing import NDArray
 
 GROUND = "0"
 
+# `card` of what stands on no card: a load that a Change added.
+ADDED = -1
+
 PortKind = Literal["voltage", "current"]
 
 
@@ -31,6 +34,29 @@ class Place:
     line: int
     column: int
     text: str
+
+
+@dataclass(frozen=True, slots=True)
+class ReadingNote:
+    """What the reader must know about how the netlist was read: where ("board.cir:12"), and a sentence."""
+
+    where: str
+    says: str
+
+
+@dataclass(frozen=True, slots=True)
+class Instance:
+    """One instance of a subcircuit: `path` of an item is its number in `Circuit.instances`; number 0 is the netlist.
+
+    name: hierarchical, "X1.X2". subcircuit: name of its `.subckt`. card: its X card. definition: the `.subckt` card.
+    parent: number of the instance that holds it. Number 0 has empty names and -1 for the rest.
+    """
+
+    name: str
+    subcircuit: str
+    card: int
+    definition: int
+    parent: int
 
 
 @dataclass(frozen=True, slots=True)
@@ -155,7 +181,8 @@ class Circuit:
     nodes: node names by number; nodes[0] is "0". drive: the sources that are driven, with complex amplitude.
     temperature_c, tnom_c: analysis and nominal temperature in °C. options: (name, value) of those options that
     change
-    the result (gmin). models: by flat name.
+    the result (gmin). models: by flat name. instances: number 0 is the netlist itself. notes: how the netlist was read
+    where that needs saying.
     """
 
     title: str
@@ -168,6 +195,8 @@ class Circuit:
     temperature_c: float = 27.0
     tnom_c: float = 27.0
     options: tuple[tuple[str, float], ...] = field(default=())
+    instances: tuple[Instance, ...] = ()
+    notes: tuple[ReadingNote, ...] = ()
 
     def model(self, name: str) -> Model:
         """Give the model with this flat name; KeyError where there is none."""

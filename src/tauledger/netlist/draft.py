@@ -1,0 +1,143 @@
+"""The flat circuit while it grows: nodes by number, passives in rows, and which changes have found their place."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+
+from tauledger.circuit import (
+    GROUND,
+    Change,
+    Circuit,
+    Drive,
+    Element,
+    Instance,
+    Model,
+    Passives,
+    Port,
+    ReadingNote,
+    fold,
+)
+from tauledger.errors import InputError
+from tauledger.netlist.diagnostics import nearest, visible
+
+MOST_ELEMENTS = 1_000_000
+MOST_NESTED_INSTANCES = 60
+
+
+@dataclass(frozen=True, slots=True)
+class Row:
+    """One plain R, C or L."""
+
+    kind: str
+    name: str
+    a: int
+    b: int
+    value: float
+    card: int
+    path: int
+
+
+@dataclass(slots=True)
+class Draft:
+    """What elaboration has gathered so far.
+
+    numbers: node number by folded flat name. taken: where each flat element name was first used. changed: values of a
+    Change by folded name that have not been used yet; used ones are taken out.
+    """
+
+    nodes: list[str] = field(default_factory=lambda: [GROUND])
+    numbers: dict[str, int] = field(default_factory=lambda: {GROUND: 0})
+    rows: list[Row] = field(default_factory=list)
+    elements: list[Element] = field(default_factory=list)
+    models: dict[str, Model] = field(default_factory=dict)
+    instances: list[Instance] = field(default_factory=lambda: [Instance("", "", -1, -1, -1)])
+    taken: dict[str, str] = field(default_factory=dict)
+    changed_elements: dict[str, tuple[str, float]] = field(default_factory=dict)
+    changed_models: dict[tuple[str, str], tuple[str, str, float]] = field(default_factory=dict)
+    fixed: set[str] = field(default_factory=set)
+
+
+def draft_for(change: Change) -> Draft:
+    """Begin a circuit that a Change will alter."""
+    draft = Draft()
+    draft.changed_elements = {fold(name): (name, value) for name, value in change.elements}
+    draft.changed_models = {(fold(m), fold(p)): (m, p, value) for m, p, value in change.models}
+    return draft
+
+
+def node_number(draft: Draft, flat: str) -> int:
+    """Give the number of a node by its flat name; the first spelling is kept."""
+    key = fold(flat)
+    number = draft.numbers.get(key)
+    if number is None:
+        number = len(draft.nodes)
+        draft.numbers[key] = number
+        draft.nodes.append(flat)
+    return number
+
+
+def check_all_used(draft: Draft) -> None:
+    """Raise InputError for a change that found no element or model of its name."""
+    for name, _value in draft.changed_elements.values():
+        if fold(name) in draft.fixed:
+            raise InputError(f"{visible(name)} has no single value that could be set", "set a parameter of its model")
+        known = [row.name for row in draft.rows] + [e.name for e in draft.elements if e.letter in "VIG"]
+        raise InputError(
+            f"no element is called {visible(name)!r}", nearest(name, known, otherwise=f"there are {_listed(known)}")
+        )
+    for name, parameter, _value in draft.changed_models.values():
+        known = [model.name for model in draft.models.values()]
+        if fold(name) not in {fold(model) for model in known}:
+            raise InputError(
+                f"no model in use is called {visible(name)!r}",
+                nearest(name, known, otherwise=f"there are {_listed(known)}"),
+            )
+        raise InputError(f"model {visible(name)} has no parameter {visible(parameter)!r}")
+
+
+def _listed(names: list[str]) -> str:
+    return (", ".join(names[:12]) + (", .." if len(names) > 12 else "")) or "none"
+
+
+def passives(rows: list[Row]) -> Passives:
+    """Turn rows into columns."""
+    import numpy as np
+
+    return Passives(
+        kind="".join(row.kind for row in rows),
+        name=tuple(row.name for row in rows),
+        a=np.array([row.a for row in rows], dtype=np.int32),
+        b=np.array([row.b for row in rows], dtype=np.int32),
+        value=np.array([row.value for row in rows], dtype=np.float64),
+        card=np.array([row.card for row in rows], dtype=np.int32),
+        path=np.array([row.path for row in rows], dtype=np.int32),
+    )
+
+
+def finished(
+    draft: Draft,
+    *,
+    title: str,
+    elements: tuple[Element, ...],
+    drive: tuple[Drive, ...],
+    output: Port,
+    temperature_c: float,
+    tnom_c: float,
+    options: tuple[tuple[str, float], ...],
+    notes: tuple[ReadingNote, ...],
+) -> Circuit:
+    """Freeze the draft."""
+    return Circuit(
+        title=title,
+        nodes=tuple(draft.nodes),
+        passives=passives(draft.rows),
+        elements=elements,
+        models=tuple(draft.models.values()),
+        drive=drive,
+        output=output,
+        temperature_c=temperature_c,
+        tnom_c=tnom_c,
+        options=options,
+        instances=tuple(draft.instances),
+        notes=notes,
+    )

@@ -1,0 +1,180 @@
+"""From the netlist as read to the flat circuit: parameters, models and subcircuits get their values here.
+
+Pure: the same netlist under another Change gives another circuit, and nothing is kept between two calls.
+"""
+
+from __future__ import annotations
+
+import math
+
+from tauledger.circuit import ADDED, NO_CHANGE, Change, Circuit, Port, fold
+from tauledger.errors import Diagnostic, InputError, NetlistError
+from tauledger.netlist.diagnostics import Site, gather, nearest, visible
+from tauledger.netlist.draft import Draft, Row, check_all_used, draft_for, finished
+from tauledger.netlist.flatten import Surroundings, flatten
+from tauledger.netlist.hints import hints
+from tauledger.netlist.items import Setting, Value, flattened
+from tauledger.netlist.netlist import Netlist
+from tauledger.netlist.options import option_settings
+from tauledger.netlist.ports import choose_drive, choose_output, parse_port
+from tauledger.netlist.scopes import Binding, Scope, define, number_of, work_out_all
+
+ABSOLUTE_ZERO_C = -273.15
+ROOM_C = 27.0
+
+
+def elaborate(
+    netlist: Netlist, change: Change = NO_CHANGE, *, drive: str | None = None, output: str | None = None
+) -> Circuit:
+    """Give the flat circuit of a netlist under a change.
+
+    drive: name of the one source to drive with 1, all others with 0; None drives every source with an AC value.
+    output: "out", "v(out)", "v(a,b)" or "i(vload)"; None takes the netlist's hints, else the only node called out, vout
+    or output. Raises NetlistError (up to 20 diagnostics) where cards have no usable meaning, InputError where drive,
+    output or change name what is not there.
+    """
+    draft = draft_for(change)
+    scope = Scope()
+    faults: list[Diagnostic] = []
+    _global_parameters(netlist, change, scope, faults)
+    settings = _settings(netlist, change, scope, faults)
+    top = Surroundings(
+        definition=netlist.top,
+        scope=scope,
+        prefix="",
+        ports={},
+        m=1.0,
+        path=0,
+        context=(),
+        caller=None,
+        lexical=None,
+        models={},
+    )
+    flatten(netlist, draft, top, faults)
+    if faults:
+        raise gather(faults, netlist.files)
+    _check_ground(netlist, draft)
+    check_all_used(draft)
+    driven = choose_drive(draft.elements, drive)
+    currents = _currents(draft)
+    forced = [currents[source.source] for source in driven.drive if source.kind == "voltage"]
+    forced += [Port(port.minus, port.plus) for port in forced]
+    port = choose_output(output, hints(netlist).outputs, draft.nodes, currents, forced)
+    _add_loads(draft, change, currents)
+    return finished(
+        draft,
+        title=netlist.title,
+        elements=driven.elements,
+        drive=driven.drive,
+        output=port,
+        temperature_c=settings["temp"],
+        tnom_c=settings["tnom"],
+        options=tuple((name, settings[name]) for name in ("gmin",) if name in settings),
+        notes=netlist.notes + tuple(scope.notes),
+    )
+
+
+def instance_context(netlist: Netlist, circuit: Circuit, path: int) -> tuple[str, ...]:
+    """Word where an instance stands, innermost first: "in X3 (board.cir:41), subcircuit buffer (parts.lib:7)"."""
+    lines = []
+    while path > 0:
+        instance = circuit.instances[path]
+        at = Site(netlist.files, netlist.cards[instance.card]).where
+        of = Site(netlist.files, netlist.cards[instance.definition]).where
+        lines.append(f"in {instance.name} ({at}), subcircuit {instance.subcircuit} ({of})")
+        path = instance.parent
+    return tuple(lines)
+
+
+def _global_parameters(netlist: Netlist, change: Change, scope: Scope, faults: list[Diagnostic]) -> None:
+    for number in netlist.top.parameters:
+        site = Site(netlist.files, netlist.cards[number])
+        for item in netlist.items[number]:
+            if isinstance(item, Setting):
+                define(scope, Binding(site, item))
+    for name, value in change.parameters:
+        if fold(name) not in scope.bindings:
+            known = [binding.setting.name.text for binding in scope.bindings.values()]
+            otherwise = f"there are {', '.join(known)}" if known else "the netlist has no .param"
+            raise InputError(f"no parameter is called {visible(name)!r}", nearest(name, known, otherwise=otherwise))
+        _check_finite(name, value)
+        scope.fixed[fold(name)] = value
+    work_out_all(scope, faults)
+
+
+def _settings(netlist: Netlist, change: Change, scope: Scope, faults: list[Diagnostic]) -> dict[str, float]:
+    """Give temp and tnom in °C, and gmin in S where it is set; `.temp` wins over `.options temp`, the last counts."""
+    values = {"temp": ROOM_C, "tnom": ROOM_C}
+    for number in netlist.options:
+        site = Site(netlist.files, netlist.cards[number])
+        for setting in option_settings(site, netlist.items[number]):
+            name = fold(setting.name.text)
+            if name not in ("temp", "tnom", "gmin"):
+                continue
+            try:
+                values[name] = number_of(site, setting.value, scope)
+                if name == "gmin" and not values[name] >= 0.0:
+                    raise site.fault(setting.value, "gmin must be 0 or more")
+                if name != "gmin":
+                    _check_temperature(site, setting.value, values[name])
+            except NetlistError as error:
+                faults.extend(error.diagnostics)
+    for number in netlist.temperatures:
+        site = Site(netlist.files, netlist.cards[number])
+        value = next(item for item in flattened(netlist.items[number][1:]) if not isinstance(item, Setting))
+        try:
+            values["temp"] = number_of(site, value, scope)
+            _check_temperature(site, value, values["temp"])
+        except NetlistError as error:
+            faults.extend(error.diagnostics)
+    if change.temperature_c is not None:
+        if not ABSOLUTE_ZERO_C < change.temperature_c < math.inf:
+            raise InputError(f"{change.temperature_c:g} °C is no temperature", "absolute zero is -273.15 °C")
+        values["temp"] = change.temperature_c
+    return values
+
+
+def _check_temperature(site: Site, item: Value, celsius: float) -> None:
+    if not ABSOLUTE_ZERO_C < celsius < math.inf:
+        raise site.fault(item, f"{celsius:g} °C is no temperature", "absolute zero is -273.15 °C")
+
+
+def _check_finite(name: str, value: float) -> None:
+    if not math.isfinite(value):
+        raise InputError(f"{visible(name)}: {value} is not a finite number")
+
+
+def _check_ground(netlist: Netlist, draft: Draft) -> None:
+    if not draft.rows and not draft.elements:
+        raise InputError(
+            f"{visible(netlist.path)} has no elements", "the first line is the title: is a card lost there?"
+        )
+    connected = any(0 in (row.a, row.b) for row in draft.rows) or any(0 in e.nodes for e in draft.elements)
+    if not connected:
+        raise InputError("no element is connected to ground", "call one node 0: all voltages are taken against it")
+
+
+def _currents(draft: Draft) -> dict[str, Port]:
+    """Give the elements whose current can be an output, with the nodes between which they stand."""
+    found = {
+        element.name: Port(draft.nodes[element.nodes[0]], draft.nodes[element.nodes[1]])
+        for element in draft.elements
+        if element.letter == "V"
+    }
+    found |= {row.name: Port(draft.nodes[row.a], draft.nodes[row.b]) for row in draft.rows if row.kind == "L"}
+    return found
+
+
+def _add_loads(draft: Draft, change: Change, currents: dict[str, Port]) -> None:
+    for load in change.loads:
+        _check_finite("load", load.value)
+        if load.value < 0.0 or (load.kind == "R" and load.value == 0.0):
+            raise InputError(f"a load of {load.value:g} is not possible", "give a value greater than 0")
+        port = parse_port(f"v({load.plus},{load.minus})", draft.nodes, currents)
+        number = 1
+        while fold(f"{load.kind}load{number}") in draft.taken:
+            number += 1
+        name = f"{load.kind}load{number}"
+        draft.taken[fold(name)] = ""
+        a, b = draft.numbers[fold(port.plus)], draft.numbers[fold(port.minus)]
+        draft.rows.append(Row(load.kind, name, a, b, load.value, ADDED, 0))

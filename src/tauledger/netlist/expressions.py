@@ -1,0 +1,266 @@
+"""The numeric dialect of {..}, '..' and .param: parsing by grammar/expression.lark, and evaluation.
+
+As ngspice evaluates it before the run: x^y is |x|^y, pow(x, y) keeps the sign, log is the natural logarithm, truth is 1
+or 0, `\\` is the integer division, nint rounds half to even. Random functions are refused: a review must come out
+the same each time.
+"""
+
+from __future__ import annotations
+
+import math
+import operator
+from collections.abc import Callable, Sequence
+from functools import cache
+from types import SimpleNamespace
+from typing import TYPE_CHECKING, Any
+
+from tauledger.errors import NetlistError
+from tauledger.netlist.diagnostics import Site, nearest
+from tauledger.netlist.formulas import Call, Formula, Name, Number, Operation, Tree
+from tauledger.netlist.numbers import read_formula_number
+
+if TYPE_CHECKING:
+    from lark import Lark, Token
+
+MOST_CHARACTERS = 4000
+MOST_OPERATORS = 300
+
+
+def _sign(x: float) -> float:
+    return math.copysign(1.0, x) if x else 0.0
+
+
+def _choose(condition: float, yes: float, no: float) -> float:
+    return yes if condition else no
+
+
+def _power(x: float, y: float) -> float:
+    return math.pow(abs(x), y)
+
+
+FUNCTIONS: dict[str, tuple[int, Callable[..., float]]] = {
+    "abs": (1, abs),
+    "sgn": (1, _sign),
+    "sqrt": (1, math.sqrt),
+    "sqr": (1, lambda x: x * x),
+    "exp": (1, math.exp),
+    "ln": (1, math.log),
+    "log": (1, math.log),
+    "log10": (1, math.log10),
+    "sin": (1, math.sin),
+    "cos": (1, math.cos),
+    "tan": (1, math.tan),
+    "asin": (1, math.asin),
+    "acos": (1, math.acos),
+    "atan": (1, math.atan),
+    "arctan": (1, math.atan),
+    "sinh": (1, math.sinh),
+    "cosh": (1, math.cosh),
+    "tanh": (1, math.tanh),
+    "asinh": (1, math.asinh),
+    "acosh": (1, math.acosh),
+    "atanh": (1, math.atanh),
+    "int": (1, lambda x: float(math.trunc(x))),
+    "nint": (1, lambda x: float(round(x))),
+    "floor": (1, lambda x: float(math.floor(x))),
+    "ceil": (1, lambda x: float(math.ceil(x))),
+    "min": (2, min),
+    "max": (2, max),
+    "pow": (2, math.pow),
+    "pwr": (2, _power),
+    "ternary_fcn": (3, _choose),
+}
+RANDOM = ("gauss", "agauss", "unif", "aunif", "limit")
+
+_OPERATORS: dict[str, Callable[[float, float], float]] = {
+    "+": operator.add,
+    "-": operator.sub,
+    "*": operator.mul,
+    "/": operator.truediv,
+    "%": math.fmod,
+    "\\": lambda x, y: float(math.trunc(x / y)),
+    "^": _power,
+    "**": _power,
+    "==": lambda x, y: float(x == y),
+    "=": lambda x, y: float(x == y),
+    "!=": lambda x, y: float(x != y),
+    "<>": lambda x, y: float(x != y),
+    "<": lambda x, y: float(x < y),
+    ">": lambda x, y: float(x > y),
+    "<=": lambda x, y: float(x <= y),
+    ">=": lambda x, y: float(x >= y),
+    "&&": lambda x, y: float(bool(x) and bool(y)),
+    "||": lambda x, y: float(bool(x) or bool(y)),
+}
+
+
+def parse_formula(site: Site, text: str, at: int, inner: int) -> Formula:
+    """Parse the text of a formula. at, inner: offsets in the card of its first character and of the text.
+
+    Raises NetlistError at the character where the formula stops making sense.
+    """
+    from lark import UnexpectedCharacters, UnexpectedToken
+
+    if not text.strip():
+        raise site.fault(at, "the formula is empty", "write a number or a formula", wide=len(text) + inner - at + 1)
+    if len(text) > MOST_CHARACTERS or sum(map(text.count, "+-*/%\\^<>=&|!?(,")) > MOST_OPERATORS:
+        limits = f"at most {MOST_CHARACTERS} characters and {MOST_OPERATORS} operators and parentheses"
+        raise site.fault(at, "the formula is too long", f"split it into parameters: {limits}")
+    try:
+        parsed: Any = _parser().parse(text)
+    except UnexpectedCharacters as error:
+        where = error.pos_in_stream or 0
+        raise site.fault(inner + where, f"{text[where]!r} cannot stand in a formula") from error
+    except UnexpectedToken as error:
+        if error.token.type == "$END":
+            unclosed = text.count("(") > text.count(")")
+            message = (
+                "the formula ends before its last parenthesis is closed" if unclosed else "the formula ends too early"
+            )
+            raise site.fault(
+                inner + len(text), message, "" if unclosed else "an operator needs a value behind it"
+            ) from error
+        where = error.pos_in_stream or 0
+        found = str(error.token)
+        raise site.fault(
+            inner + where, f"{found!r} cannot stand here in a formula", _advice(text, where, found)
+        ) from error
+    tree: Tree = parsed
+    _check_signs(site, tree, text, inner)
+    return Formula(text, at, inner, tree)
+
+
+def _advice(text: str, where: int, found: str) -> str:
+    if found[0] in "+-" or text[:where].rstrip()[-1:] in ("+", "-"):
+        return "behind an operator a sign stands only before a number: use parentheses"
+    if found[0].isdigit() and where and text[where - 1].isalpha():
+        return "digits cannot follow a suffix: write 4.7k, not 4k7"
+    return "an operator is missing before it" if found[0].isalnum() or found[0] in "_(" else ""
+
+
+def _check_signs(site: Site, tree: Tree, text: str, inner: int) -> None:
+    """Refuse a sign behind a comparison, `?`, `:`, && or || before anything but a number, as ngspice does."""
+    if isinstance(tree, Number | Name):
+        return
+    if isinstance(tree, Call):
+        for part in tree.arguments:
+            _check_signs(site, part, text, inner)
+        return
+    if tree.operator == "negative" or tree.operator == "positive":
+        before = text[: tree.at].rstrip()
+        if before and before[-1] not in "(," and not isinstance(tree.operands[0], Number):
+            raise site.fault(
+                inner + tree.at, "a sign behind an operator stands only before a number", "use parentheses"
+            )
+    for part in tree.operands:
+        _check_signs(site, part, text, inner)
+
+
+def evaluate(tree: Tree, parameter: Callable[[Name], float], fault: Callable[[Tree, str, str], NetlistError]) -> float:
+    """Evaluate a formula. parameter: gives the value of a name. fault: makes the error for a part of the tree.
+
+    Raises NetlistError for an unknown function, a wrong number of arguments, and a result that is not finite.
+    """
+    match tree:
+        case Number(value=value):
+            return value
+        case Name():
+            return parameter(tree)
+        case Operation(operator="?", operands=(condition, yes, no)):
+            return evaluate(yes if evaluate(condition, parameter, fault) else no, parameter, fault)
+        case Operation(operator="negative", operands=(inner,)):
+            return -evaluate(inner, parameter, fault)
+        case Operation(operator="positive", operands=(inner,)):
+            return evaluate(inner, parameter, fault)
+        case Operation(operator="!", operands=(inner,)):
+            return float(not evaluate(inner, parameter, fault))
+        case Operation(operator=sign, operands=(left, right)):
+            return _finite(
+                tree, _OPERATORS[sign], [evaluate(left, parameter, fault), evaluate(right, parameter, fault)], fault
+            )
+        case Call(function=name, arguments=arguments):
+            function = _function(tree, name, len(arguments), fault)
+            return _finite(tree, function, [evaluate(part, parameter, fault) for part in arguments], fault)
+    raise TypeError(tree)
+
+
+def _function(
+    tree: Call, name: str, count: int, fault: Callable[[Tree, str, str], NetlistError]
+) -> Callable[..., float]:
+    known = FUNCTIONS.get(name.lower())
+    if known is None:
+        if name.lower() in RANDOM:
+            raise fault(
+                tree, f"{name} draws a random number", "a review must come out the same each time: write a value"
+            )
+        raise fault(tree, f"no function is called {name!r}", nearest(name, FUNCTIONS))
+    arity, function = known
+    if count != arity:
+        wanted = "1 argument" if arity == 1 else f"{arity} arguments"
+        raise fault(tree, f"{name} takes {wanted}, not {count}", "")
+    return function
+
+
+def _finite(
+    tree: Operation | Call,
+    function: Callable[..., float],
+    arguments: list[float],
+    fault: Callable[[Tree, str, str], NetlistError],
+) -> float:
+    try:
+        result = function(*arguments)
+    except (ValueError, ArithmeticError) as error:
+        raise _impossible(tree, arguments, fault) from error
+    if not math.isfinite(result):
+        raise _impossible(tree, arguments, fault)
+    return result
+
+
+def _impossible(
+    tree: Operation | Call, arguments: list[float], fault: Callable[[Tree, str, str], NetlistError]
+) -> NetlistError:
+    values = [f"{value:.6g}" for value in arguments]
+    if isinstance(tree, Call):
+        said = f"{tree.function}({', '.join(values)})"
+    else:
+        said = f"{values[0]} {tree.operator} {values[1]}"
+    return fault(tree, f"{said} has no finite value", "")
+
+
+@cache
+def _parser() -> Lark:
+    from lark import Lark
+
+    def at(token: Token) -> int:
+        return token.start_pos or 0
+
+    def number(children: Sequence[Token]) -> Number:
+        return Number(read_formula_number(str(children[0])), at(children[0]))
+
+    def signed(children: Sequence[Token]) -> Number:
+        value = read_formula_number(str(children[1]))
+        return Number(-value if children[0] == "-" else value, at(children[0]))
+
+    def name(children: Sequence[Token]) -> Name:
+        return Name(str(children[0]), at(children[0]))
+
+    def leading(children: Sequence[Any]) -> Operation:
+        return Operation("negative" if children[0] == "-" else "positive", (children[1],), at(children[0]))
+
+    def denial(children: Sequence[Any]) -> Operation:
+        return Operation("!", (children[1],), at(children[0]))
+
+    def binary(children: Sequence[Any]) -> Operation:
+        return Operation(str(children[1]), (children[0], children[2]), at(children[1]))
+
+    def choose(children: Sequence[Any]) -> Operation:
+        return Operation("?", tuple(children), children[0].at)
+
+    def call(children: Sequence[Any]) -> Call:
+        return Call(str(children[0]), tuple(children[1:]), at(children[0]))
+
+    rules = (number, signed, name, leading, denial, binary, choose, call)
+    build = SimpleNamespace(**{rule.__name__: rule for rule in rules})
+    return Lark.open_from_package(
+        "tauledger.grammar", "expression.lark", ("",), parser="lalr", lexer="contextual", transformer=build
+    )

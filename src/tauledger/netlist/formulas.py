@@ -1,0 +1,68 @@
+"""Formulas of the numeric dialect ({..}, '..', .param) as trees: what the text says, before any value is known."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass
+
+
+@dataclass(frozen=True, slots=True)
+class Number:
+    """A number; `at` is its offset in the formula, as everywhere in a tree."""
+
+    value: float
+    at: int
+
+
+@dataclass(frozen=True, slots=True)
+class Name:
+    """A parameter."""
+
+    text: str
+    at: int
+
+
+@dataclass(frozen=True, slots=True)
+class Operation:
+    """A sign or denial with one operand, an operator with two, or "?" with three."""
+
+    operator: str
+    operands: tuple[Tree, ...]
+    at: int
+
+
+@dataclass(frozen=True, slots=True)
+class Call:
+    """A function with its arguments."""
+
+    function: str
+    arguments: tuple[Tree, ...]
+    at: int
+
+
+Tree = Number | Name | Operation | Call
+
+
+@dataclass(frozen=True, slots=True)
+class Formula:
+    """A formula on a card: the text between its braces or quotes, the tree, and where it stands.
+
+    at: offset of its first character in the card, brace included. inner: offset of the text.
+    """
+
+    text: str
+    at: int
+    inner: int
+    tree: Tree
+
+
+def names(tree: Tree) -> Iterator[str]:
+    """Run through the parameter names that a tree mentions, as written."""
+    match tree:
+        case Name(text=text):
+            yield text
+        case Operation(operands=inner) | Call(arguments=inner):
+            for part in inner:
+                yield from names(part)
+        case Number():
+            return

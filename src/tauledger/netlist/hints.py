@@ -1,0 +1,91 @@
+"""What analyses, outputs and `.control` blocks say about range and output; they are never run."""
+
+from __future__ import annotations
+
+import re
+from dataclasses import dataclass
+
+from tauledger.netlist.netlist import Netlist
+from tauledger.netlist.numbers import read_number
+
+_REQUEST = re.compile(r"(?<![\w.])([vi])(?:db|m|p|r|i)?\s*\(\s*([^()\s,]+)\s*(?:,\s*([^()\s,]+)\s*)?\)", re.IGNORECASE)
+_OF_AC = re.compile(r"(?<![\w.])[vi](?:db|m|p|r|i)\s*\(|(?<![\w.])(?:db|mag|ph|cph)\s*\(", re.IGNORECASE)
+_OUTPUT_WORDS = frozenset(
+    [".print", ".plot", ".save", ".probe", ".meas", ".measure", "print", "plot", "meas", "measure", "save", "hardcopy"]
+)
+_OTHER_ANALYSES = frozenset(["tran", "dc", "op", "noise", "disto", "sp"])
+
+
+@dataclass(frozen=True, slots=True)
+class Hints:
+    """outputs: "v(out)", "v(a,b)", "i(vload)" in order, each once; those asked of an AC analysis where there are any.
+
+    f_start_hz, f_stop_hz: range of the first `.ac` (or `ac` in a `.control` block), None where there is none.
+    """
+
+    outputs: tuple[str, ...] = ()
+    f_start_hz: float | None = None
+    f_stop_hz: float | None = None
+
+
+def hints(netlist: Netlist) -> Hints:
+    """Gather the hints of a netlist."""
+    ranked: dict[int, list[str]] = {0: [], 1: [], 2: []}
+    span: tuple[float, float] | None = None
+    for text in netlist.requests:
+        words = text.lower().split()
+        if not words:
+            continue
+        if words[0] in (".ac", "ac"):
+            span = span or _range(words)
+        elif words[0] in _OUTPUT_WORDS:
+            rank = _rank(text, words)
+            ranked[rank].extend(name for name in _outputs(text) if name not in ranked[rank])
+    outputs = next((names for _, names in sorted(ranked.items()) if names), [])
+    return Hints(tuple(outputs), *(span or (None, None)))
+
+
+def _rank(text: str, words: list[str]) -> int:
+    """Order requests: of an AC analysis first, of no analysis in particular next, of another one last."""
+    of = words[1] if len(words) > 1 else ""
+    if of == "ac" or _OF_AC.search(text):
+        return 0
+    return 2 if of in _OTHER_ANALYSES else 1
+
+
+def _outputs(text: str) -> list[str]:
+    found = []
+    for kind, plus, minus in _REQUEST.findall(text):
+        found.append(f"{kind.lower()}({plus},{minus})" if minus else f"{kind.lower()}({plus})")
+    return found
+
+
+def _range(words: list[str]) -> tuple[float, float] | None:
+    """Read `ac dec points start stop`; anything else is no hint."""
+    if len(words) < 5:
+        return None
+    start, stop = read_number(words[3]), read_number(words[4])
+    if start is None or stop is None or not 0.0 <= start.value <= stop.value < float("inf"):
+        return None
+    return (start.value, stop.value)
+
+
+def read_past(netlist: Netlist) -> str:
+    """Say in one line what was read past, e.g. "2 analyses, 1 .print, .control block of 5 lines, 3 options"."""
+    plural = {"analysis": "analyses", "noise switch": "noise switches"}
+    words = []
+    for what, count in sorted(netlist.past, key=lambda entry: _place_in_line(entry[0])):
+        if what.startswith(".control"):
+            words.append(what if count == 1 else f"{count} × {what}")
+        elif count:
+            many = plural.get(what, what if what.startswith(".") else f"{what}s")
+            words.append(f"{count} {what if count == 1 else many}")
+    return ", ".join(words)
+
+
+def _place_in_line(what: str) -> tuple[int, str]:
+    order = ("analysis", ".", ".control", "option")
+    return (
+        order.index(what) if what in order else 2 if what.startswith(".control") else 1 if what[0] == "." else 4,
+        what,
+    )

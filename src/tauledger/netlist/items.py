@@ -1,0 +1,77 @@
+"""What a card holds before anybody knows what it means: words, formulas, quoted texts, settings and groups.
+
+`at` is the offset of the first character in the logical card.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Iterator
+from dataclasses import dataclass
+
+from tauledger.netlist.formulas import Formula
+
+
+@dataclass(frozen=True, slots=True)
+class Word:
+    """A run of characters without blank, comma, parenthesis, equals sign or quote: a name, a number or a keyword."""
+
+    text: str
+    at: int
+
+
+@dataclass(frozen=True, slots=True)
+class Quoted:
+    """Text between double quotes, which are left out."""
+
+    text: str
+    at: int
+
+
+Value = Word | Formula | Quoted
+
+
+@dataclass(frozen=True, slots=True)
+class Setting:
+    """`name=value`."""
+
+    name: Word
+    value: Value
+
+    @property
+    def at(self) -> int:
+        """Offset of the name."""
+        return self.name.at
+
+
+@dataclass(frozen=True, slots=True)
+class Group:
+    """Items between parentheses. end: offset behind the closing one."""
+
+    items: tuple[Item, ...]
+    at: int
+    end: int
+
+
+Item = Word | Formula | Quoted | Setting | Group
+
+
+def width(item: Item) -> int:
+    """Say how many characters of the card an item takes."""
+    match item:
+        case Word(text=text):
+            return len(text)
+        case Formula(text=text) | Quoted(text=text):
+            return len(text) + 2
+        case Setting(name=name, value=value):
+            return value.at + width(value) - name.at
+        case Group(at=at, end=end):
+            return end - at
+
+
+def flattened(items: Iterable[Item]) -> Iterator[Value | Setting]:
+    """Run through items as if parentheses were blanks."""
+    for item in items:
+        if isinstance(item, Group):
+            yield from flattened(item.items)
+        else:
+            yield item

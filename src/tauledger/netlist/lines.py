@@ -1,0 +1,115 @@
+"""Logical lines: comments out, continuations joined, `.control` blocks set apart; every character keeps its place.
+
+What counts as a comment follows ngspice: `*`, `;`, `//` and `$` at the start of a line, `;` and `//` anywhere outside
+quotes, `$` behind a blank or a comma.
+"""
+
+from __future__ import annotations
+
+import re
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+from tauledger.errors import Diagnostic
+from tauledger.netlist.diagnostics import diagnostic, unsafe
+from tauledger.netlist.netlist import Card, Piece
+
+_MARK = re.compile(r"""'[^']*'|"[^"]*"|;|//|\$""")
+_COMMENT_START = ("*", ";", "//", "$")
+
+
+@dataclass(frozen=True, slots=True)
+class Assembled:
+    """A file in logical lines. scripts: the lines of each `.control` block, its fences left out."""
+
+    cards: tuple[Card, ...]
+    scripts: tuple[tuple[str, ...], ...]
+    faults: tuple[Diagnostic, ...]
+
+
+def assemble(lines: Sequence[str], *, file: int, path: str, start: int = 0) -> Assembled:
+    """Join the physical lines from index `start` on to logical cards.
+
+    Faults: a continuation with nothing before it, a control character in a card, a block without `.endc`.
+    """
+    cards: list[Card] = []
+    scripts: list[tuple[str, ...]] = []
+    faults: list[Diagnostic] = []
+    texts: list[str] = []
+    pieces: list[Piece] = []
+    length = 0
+    joined = False
+    script: list[str] | None = None
+    opened = 0
+
+    def close() -> None:
+        text = "".join(texts)
+        if text.strip():
+            cards.append(Card(text, file, tuple(pieces)))
+        texts.clear()
+        pieces.clear()
+
+    for number, line in enumerate(lines[start:], start + 1):
+        content = line.strip()
+        if script is not None:
+            if content[:5].lower() == ".endc":
+                scripts.append(tuple(script))
+                script = None
+            else:
+                script.append(content)
+            continue
+        if not content or content.startswith(_COMMENT_START):
+            continue
+        if content[:8].lower() == ".control":
+            script, opened = [], number
+            continue
+        text = without_comment(line)
+        column = len(text) - len(text.lstrip())
+        continues = joined
+        if text[column] == "+" and not joined:
+            continues = True
+            column += 1
+            if not texts:
+                message = "this continues nothing: no card stands before it"
+                faults.append(diagnostic(path, number, column, line, message))
+                continue
+        body = text[column:].rstrip()
+        joined = body.endswith("\\\\")
+        body = body.removesuffix("\\\\").rstrip()
+        column += len(body) - len(body.lstrip())
+        body = body.lstrip()
+        control = next((index for index, character in enumerate(body) if unsafe(character)), None)
+        if control is not None:
+            message = f"control character U+{ord(body[control]):04X} in a card"
+            faults.append(diagnostic(path, number, column + control + 1, line, message, "delete it"))
+        if not continues:
+            close()
+            length = 0
+        if texts:
+            texts.append(" ")
+            length += 1
+        texts.append(body)
+        pieces.append(Piece(length, number, column + 1))
+        length += len(body)
+    close()
+    if script is not None:
+        fence = lines[opened - 1]
+        column = len(fence) - len(fence.lstrip()) + 1
+        faults.append(
+            diagnostic(
+                path, opened, column, fence, "this block is never closed", "close it with .endc", len(".control")
+            )
+        )
+    return Assembled(tuple(cards), tuple(scripts), tuple(faults))
+
+
+def without_comment(line: str) -> str:
+    """Cut the comment at the end of a physical line; between quotes nothing is a comment."""
+    if ";" not in line and "//" not in line and "$" not in line:
+        return line
+    for mark in _MARK.finditer(line):
+        found = mark.group()
+        start = mark.start()
+        if found in (";", "//") or (found == "$" and (start == 0 or line[start - 1] in " \t,")):
+            return line[:start]
+    return line

@@ -1,0 +1,106 @@
+"""The netlist as read: its files, its logical cards with their positions, and the tree of subcircuits.
+
+Nothing here is evaluated yet: parameters, models and instances get their values in elaborate, once per condition.
+"""
+
+from __future__ import annotations
+
+from bisect import bisect_right
+from dataclasses import dataclass
+
+from tauledger.circuit import Place, ReadingNote
+from tauledger.netlist.items import Item, Setting, Word
+
+TOP = -1
+
+
+@dataclass(frozen=True, slots=True)
+class SourceFile:
+    """One file that was read: its path as the user would type it and its physical lines without their ends.
+
+    included_by: number of the including file, or -1; included_at: the line of the `.include` there, from 1.
+    """
+
+    path: str
+    lines: tuple[str, ...]
+    included_by: int = -1
+    included_at: int = 0
+
+
+@dataclass(frozen=True, slots=True)
+class Piece:
+    """Where a part of a logical card came from: its offset in the card, its line and column in the file, from 1."""
+
+    offset: int
+    line: int
+    column: int
+
+
+@dataclass(frozen=True, slots=True)
+class Card:
+    """One logical card: physical lines joined, comments out. file: number of its file in `Netlist.files`."""
+
+    text: str
+    file: int
+    pieces: tuple[Piece, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Definition:
+    """A subcircuit, or the netlist itself (`card` is TOP, name and ports empty); cards are numbers in `Netlist.cards`.
+
+    defaults: the parameters on the `.subckt` card. elements, parameters, models: card numbers in file order.
+    """
+
+    name: str
+    card: int
+    ports: tuple[Word, ...]
+    defaults: tuple[Setting, ...]
+    elements: tuple[int, ...]
+    parameters: tuple[int, ...]
+    models: tuple[int, ...]
+    definitions: tuple[Definition, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Netlist:
+    """All that was read.
+
+    path: as typed. items: per card what its text holds, empty where the card is not read by place and keyword.
+    globals: nodes named by `.global`, folded. options, temperatures: card numbers. requests: texts of analyses and
+    outputs, which are hints only. past: what was read past, by word and count. sha256: over the bytes of all files in
+    the order in which they were read.
+    """
+
+    path: str
+    title: str
+    files: tuple[SourceFile, ...]
+    cards: tuple[Card, ...]
+    items: tuple[tuple[Item, ...], ...]
+    top: Definition
+    globals: tuple[str, ...]
+    options: tuple[int, ...]
+    temperatures: tuple[int, ...]
+    requests: tuple[str, ...]
+    past: tuple[tuple[str, int], ...]
+    sha256: str
+    notes: tuple[ReadingNote, ...] = ()
+
+
+def position(files: tuple[SourceFile, ...], card: Card, offset: int) -> Place:
+    """Give the place in the file of a character of a logical card; an offset beyond its end is the last piece's."""
+    index = bisect_right(card.pieces, offset, key=lambda piece: piece.offset) - 1
+    piece = card.pieces[max(index, 0)]
+    source = files[card.file]
+    return Place(source.path, piece.line, piece.column + offset - piece.offset, source.lines[piece.line - 1])
+
+
+def place(netlist: Netlist, card: int, path: int = 0) -> Place:  # noqa: ARG001 - all instances share their cards
+    """Give the place of a card's first character, by the two integers that every item of a Circuit carries.
+
+    The instance (`path`) does not move the place; `instance_context` words it. Raises IndexError for ADDED: a load
+    that a Change added has no line.
+    """
+    if card < 0:
+        raise IndexError(card)
+    return position(netlist.files, netlist.cards[card], 0)

@@ -1,0 +1,149 @@
+"""Where the circuit is driven and where the response is taken: from the options, else from the netlist itself."""
+
+from __future__ import annotations
+
+import cmath
+import math
+import re
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, replace
+
+from tauledger.circuit import GROUND, Drive, Element, Port, PortKind, fold
+from tauledger.errors import InputError
+from tauledger.netlist.diagnostics import nearest, visible
+
+OUTPUT_NAMES = ("out", "vout", "output")
+MOST_CANDIDATES = 12
+
+_VOLTAGE = re.compile(r"v\s*\(\s*([^(),\s]+)\s*(?:,\s*([^(),\s]+)\s*)?\)", re.IGNORECASE)
+_CURRENT = re.compile(r"i\s*\(\s*([^(),\s]+)\s*\)", re.IGNORECASE)
+
+
+@dataclass(frozen=True, slots=True)
+class Driven:
+    """The elements with the AC values that count, and the sources that are driven."""
+
+    elements: tuple[Element, ...]
+    drive: tuple[Drive, ...]
+
+
+def choose_drive(elements: Sequence[Element], wanted: str | None) -> Driven:
+    """Drive every source with an AC value, or the one source that is wanted with 1 and all others with 0.
+
+    Raises InputError where no source has an AC value, and where the wanted one does not exist or is no source.
+    """
+    sources = [element for element in elements if element.letter in "VI"]
+    names = ", ".join(element.name for element in sources[:MOST_CANDIDATES])
+    if wanted is not None:
+        chosen = next((element for element in sources if fold(element.name) == fold(wanted)), None)
+        if chosen is None:
+            raise InputError(
+                f"no voltage or current source is called {visible(wanted)!r}",
+                nearest(wanted, [element.name for element in sources], otherwise=f"there are: {names or 'none'}"),
+            )
+        elements = [_with_ac(element, 1.0 if element is chosen else 0.0) for element in elements]
+        return Driven(tuple(elements), (Drive(chosen.name, _kind(chosen), 1.0 + 0.0j),))
+    drive = tuple(
+        Drive(element.name, _kind(element), amplitude(element))
+        for element in sources
+        if element.parameter("acmag", 0.0) != 0.0
+    )
+    if not drive:
+        first = sources[0].name if sources else "Vin"
+        raise InputError(
+            "no source has an AC value",
+            f"write AC 1 on the card of the source that carries the signal, or name it: --input {first}"
+            + (f" (there are: {names})" if sources else ""),
+        )
+    return Driven(tuple(elements), drive)
+
+
+def amplitude(element: Element) -> complex:
+    """Give a source's AC value as a complex number; the quarter turns come out exactly."""
+    magnitude, phase = element.parameter("acmag", 0.0), element.parameter("acphase", 0.0)
+    quarter, rest = divmod(phase, 90.0)
+    if rest == 0.0:
+        turns = (1.0 + 0.0j, 1.0j, -1.0 + 0.0j, -1.0j)
+        return magnitude * turns[int(quarter) % 4]
+    return cmath.rect(magnitude, math.radians(phase))
+
+
+def _kind(element: Element) -> PortKind:
+    return "voltage" if element.letter == "V" else "current"
+
+
+def _with_ac(element: Element, magnitude: float) -> Element:
+    if element.letter not in "VI":
+        return element
+    kept = tuple(pair for pair in element.parameters if pair[0] not in ("acmag", "acphase"))
+    return replace(element, parameters=(*kept, ("acmag", magnitude), ("acphase", 0.0)))
+
+
+def choose_output(
+    wanted: str | None,
+    hinted: Sequence[str],
+    nodes: Sequence[str],
+    currents: Mapping[str, Port],
+    drive: Sequence[Port],
+) -> Port:
+    """Choose where the response is taken: as wanted, else as hinted, else the only node called out, vout or output.
+
+    hinted: texts such as "v(out)". nodes: all nodes. currents: where the elements stand whose current can be
+    read. drive: what the sources force; a hint at that is none. Raises InputError that lists candidates.
+    """
+    if wanted is not None:
+        return parse_port(wanted, nodes, currents)
+    ports: list[Port] = []
+    for hint in hinted:
+        try:
+            port = parse_port(hint, nodes, currents)
+        except InputError:
+            # A hint may speak of what only another analysis has.
+            continue
+        if port not in drive and port not in ports:
+            ports.append(port)
+    if len(ports) == 1:
+        return ports[0]
+    named = [port for port in ports if fold(port.plus) in OUTPUT_NAMES and port.minus == GROUND]
+    if not ports:
+        named = [Port(node) for node in nodes if fold(node) in OUTPUT_NAMES]
+    if len(named) == 1:
+        return named[0]
+    candidates = [str(port) for port in ports] or [f"v({node})" for node in nodes if node != GROUND]
+    listed = ", ".join(candidates[:MOST_CANDIDATES]) + (", .." if len(candidates) > MOST_CANDIDATES else "")
+    message = "the netlist names several outputs" if ports else "the netlist does not say where the output is"
+    raise InputError(message, f"name one: --output 'v(node)', 'v(node,node)' or 'i(source)'; there are {listed}")
+
+
+def parse_port(text: str, nodes: Sequence[str], currents: Mapping[str, Port]) -> Port:
+    """Read an output: out, v(out), v(a,b) or i(vload); names are compared folded and come back as first written.
+
+    Raises InputError for an unknown name, with the nearest one, and for an output that is zero by definition.
+    """
+    stripped = text.strip()
+    current = _CURRENT.fullmatch(stripped)
+    if current is not None:
+        name = _known(current.group(1), tuple(currents), "voltage source or inductor")
+        return Port(currents[name].plus, currents[name].minus, "current", name)
+    voltage = _VOLTAGE.fullmatch(stripped)
+    if voltage is None and ("(" in stripped or ")" in stripped or "," in stripped or not stripped):
+        raise InputError(
+            f"{visible(text)!r} is not an output", "write a node, 'v(node)', 'v(node,node)' or 'i(source)'"
+        )
+    plus, minus = voltage.groups() if voltage is not None else (stripped, None)
+    first = _known(plus, nodes, "node")
+    second = _known(minus, nodes, "node") if minus else GROUND
+    if first == second:
+        raise InputError(f"the output {visible(text)} is always 0", "name a node other than ground")
+    return Port(first, second)
+
+
+def _known(name: str, names: Sequence[str], words: str) -> str:
+    key = GROUND if words == "node" and fold(name) == "gnd" else fold(name)
+    for candidate in names:
+        if fold(candidate) == key:
+            return candidate
+    listed = ", ".join(candidate for candidate in names[:MOST_CANDIDATES] if candidate != GROUND)
+    raise InputError(
+        f"no {words} is called {visible(name)!r}", nearest(name, names, otherwise=f"there are {listed or 'none'}")
+    )

@@ -1,0 +1,184 @@
+"""Parameters: which definition of a name counts where, and its value, worked out when it is first asked for.
+
+Scopes are dynamic, as in ngspice: the body of a subcircuit sees its own names, then those of the instance that calls
+it, and so on up to the netlist. A value given on an X card is read in the called subcircuit too (only its own name
+means the caller's); where that differs from the caller's reading, a note says so.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass, field
+
+from tauledger.circuit import ReadingNote, fold
+from tauledger.errors import Diagnostic, NetlistError
+from tauledger.netlist.diagnostics import Site, nearest
+from tauledger.netlist.expressions import evaluate
+from tauledger.netlist.formulas import Formula, Name, Tree, names
+from tauledger.netlist.items import Quoted, Setting, Value, Word
+from tauledger.netlist.numbers import read_number
+
+
+@dataclass(frozen=True, slots=True)
+class Binding:
+    """One definition of a parameter. actual: it was given on an X card. site: where that is."""
+
+    site: Site
+    setting: Setting
+    actual: bool = False
+
+
+@dataclass(slots=True)
+class Scope:
+    """The parameters of one instance. values fills as names are asked for; pending holds those being worked out.
+
+    fixed: values that a Change sets. notes and pending are shared by all scopes of one elaboration.
+    """
+
+    outer: Scope | None = None
+    bindings: dict[str, Binding] = field(default_factory=dict)
+    fixed: dict[str, float] = field(default_factory=dict)
+    values: dict[str, float] = field(default_factory=dict)
+    pending: list[tuple[int, str]] = field(default_factory=list)
+    notes: list[ReadingNote] = field(default_factory=list)
+
+    def inner(self) -> Scope:
+        """Open the scope of an instance called from here."""
+        return Scope(outer=self, pending=self.pending, notes=self.notes)
+
+
+def define(scope: Scope, binding: Binding) -> None:
+    """Add a definition; of two in one scope the last counts, with a note."""
+    name = fold(binding.setting.name.text)
+    if name in scope.bindings and not binding.actual and not scope.bindings[name].actual:
+        first = scope.bindings[name].site
+        if first.card is not binding.site.card or first.card.text.startswith("."):
+            says = f"parameter {binding.setting.name.text} is set again; the last value counts, as in ngspice"
+            scope.notes.append(ReadingNote(binding.site.where, says))
+    scope.bindings[name] = binding
+
+
+def known_names(scope: Scope) -> Iterator[str]:
+    """Run through all names that can be seen from a scope, as written."""
+    here: Scope | None = scope
+    while here is not None:
+        for binding in here.bindings.values():
+            yield binding.setting.name.text
+        here = here.outer
+
+
+def find(scope: Scope, name: str) -> float | None:
+    """Give the value of a parameter (folded name) as seen from a scope, or None where nobody defines it."""
+    here: Scope | None = scope
+    while here is not None:
+        if name in here.fixed:
+            return here.fixed[name]
+        if name in here.values:
+            return here.values[name]
+        if name in here.bindings:
+            return _work_out(here, name)
+        here = here.outer
+    return None
+
+
+def work_out_all(scope: Scope, faults: list[Diagnostic]) -> None:
+    """Work out every parameter of a scope, asked for or not, so that a wrong one does not go unseen."""
+    for name, binding in list(scope.bindings.items()):
+        try:
+            find(scope, name)
+        except NetlistError as error:
+            faults.extend(error.diagnostics)
+        except RecursionError:
+            message = "parameters and formulas are nested too deeply"
+            faults.extend(binding.site.fault(binding.setting, message).diagnostics)
+
+
+def number_of(site: Site, value: Value, scope: Scope, *, what: str = "a number or a parameter") -> float:
+    """Give the value of a word or formula on a card in SI units.
+
+    what: what is expected there, for the message. Raises NetlistError at the value.
+    """
+    if isinstance(value, Formula):
+        try:
+            return _formula(site, value, scope, own="")
+        except RecursionError as error:
+            raise site.fault(value, "parameters and formulas are nested too deeply") from error
+    if isinstance(value, Quoted):
+        raise site.fault(value, f"{what} is expected, not text", "put a formula in braces: {..}")
+    decimal = read_number(value.text)
+    if decimal is not None:
+        if decimal.tail[:1].isdigit():
+            head, tail = value.text[: -len(decimal.tail)], decimal.tail
+            hint = f"write the point: {_pointed(head, tail)} ({head} is what ngspice would read)"
+            raise site.fault(value, f"{value.text!r} has digits behind its suffix", hint)
+        if decimal.tail:
+            raise site.fault(value, f"{value.text!r} is not a number")
+        if abs(decimal.value) == float("inf"):
+            raise site.fault(value, f"{value.text!r} is beyond the range of numbers")
+        return decimal.value
+    found = find(scope, fold(value.text))
+    if found is None:
+        hint = nearest(value.text, known_names(scope))
+        raise site.fault(value, f"{value.text!r} is not {what}", hint)
+    return found
+
+
+def _pointed(head: str, tail: str) -> str:
+    """Turn 4k and 7 into 4.7k."""
+    digits = len(head.rstrip("abcdefghijklmnopqrstuvwxyzABCDEFGHIJKLMNOPQRSTUVWXYZµμ"))
+    return f"{head[:digits]}.{tail}{head[digits:]}"
+
+
+def _work_out(scope: Scope, name: str) -> float:
+    binding = scope.bindings[name]
+    key = (id(scope), name)
+    if key in scope.pending:
+        chain = [text for _, text in scope.pending[scope.pending.index(key) :]] + [name]
+        raise binding.site.fault(binding.setting, f"parameter {name} depends on itself", " → ".join(chain))
+    scope.pending.append(key)
+    try:
+        value = _bound(scope, name, binding)
+    finally:
+        scope.pending.pop()
+    scope.values[name] = value
+    return value
+
+
+def _bound(scope: Scope, name: str, binding: Binding) -> float:
+    site, value = binding.site, binding.setting.value
+    outer = scope.outer
+    if not binding.actual or outer is None:
+        return _formula(site, value, scope, own="") if isinstance(value, Formula) else number_of(site, value, scope)
+    mentioned = {fold(text) for text in names(value.tree)} if isinstance(value, Formula) else set()
+    if isinstance(value, Word):
+        mentioned = {fold(value.text)}
+    captured = (mentioned - {name}) & scope.bindings.keys()
+    if not captured or not isinstance(value, Formula):
+        return number_of(site, value, outer)
+    taken = _formula(site, value, scope, own=name)
+    callers = _formula(site, value, outer, own="")
+    if taken != callers:
+        says = (
+            f"{binding.setting.name.text}={{{value.text}}} is {taken:.6g}: ngspice takes {', '.join(sorted(captured))} "
+            f"from the subcircuit that is called; with the caller's it would be {callers:.6g}"
+        )
+        scope.notes.append(ReadingNote(site.where, says))
+    return taken
+
+
+def _formula(site: Site, formula: Formula, scope: Scope, *, own: str) -> float:
+    """Evaluate a formula in a scope; the name `own` is looked up outside of it."""
+
+    def fault(tree: Tree, message: str, hint: str) -> NetlistError:
+        wide = len(tree.text) if isinstance(tree, Name) else 1
+        return site.fault(formula.inner + tree.at, message, hint, wide=wide)
+
+    def parameter(name: Name) -> float:
+        key = fold(name.text)
+        start = scope.outer if key == own and scope.outer is not None else scope
+        found = find(start, key)
+        if found is None:
+            raise fault(name, f"no parameter is called {name.text!r}", nearest(name.text, known_names(scope)))
+        return found
+
+    return evaluate(formula.tree, parameter, fault)

@@ -1,0 +1,274 @@
+"""Sorting the logical cards: which belong to which subcircuit, which are hints, which are read past or wrong."""
+
+from __future__ import annotations
+
+from collections import Counter
+from collections.abc import Callable
+from dataclasses import dataclass, field
+
+from tauledger.circuit import ReadingNote, fold
+from tauledger.errors import Diagnostic, NetlistError
+from tauledger.netlist.assignments import parse_assignments
+from tauledger.netlist.cards import parse_card
+from tauledger.netlist.diagnostics import Site, gather, nearest, visible
+from tauledger.netlist.items import Item, Setting, Word, flattened
+from tauledger.netlist.letters import READ, TIME_FUNCTIONS
+from tauledger.netlist.netlist import TOP, Card, Definition, Netlist, SourceFile
+from tauledger.netlist.options import EFFECTIVE, option_settings
+
+ANALYSES = frozenset([".ac", ".dc", ".disto", ".noise", ".op", ".pss", ".pz", ".sens", ".sp", ".tf", ".tran"])
+OUTPUTS = {".print": ".print", ".plot": ".plot", ".save": ".save", ".probe": ".probe", ".meas": ".meas"}
+OUTPUTS |= {".measure": ".meas", ".four": ".four", ".width": ".width"}
+WITHOUT_EFFECT = frozenset({".ic", ".csparam"})
+OPTIONS = frozenset({".options", ".option", ".opt"})
+NOT_YET = frozenset([".lib", ".endl", ".func", ".if", ".elseif", ".else", ".endif", ".nodeset"])
+STRUCTURE = frozenset([".subckt", ".macro", ".ends", ".eom", ".model", ".param", ".global", ".temp", ".end"])
+STRUCTURE |= {".include", ".control"}
+KNOWN = ANALYSES | set(OUTPUTS) | WITHOUT_EFFECT | OPTIONS | NOT_YET | STRUCTURE
+MOST_NESTED_DEFINITIONS = 40
+
+
+@dataclass(slots=True)
+class _Open:
+    """A definition while its cards come in."""
+
+    name: str
+    card: int
+    ports: tuple[Word, ...] = ()
+    defaults: tuple[Setting, ...] = ()
+    elements: list[int] = field(default_factory=list)
+    parameters: list[int] = field(default_factory=list)
+    models: list[int] = field(default_factory=list)
+    definitions: list[Definition] = field(default_factory=list)
+
+    def closed(self) -> Definition:
+        return Definition(
+            self.name,
+            self.card,
+            self.ports,
+            self.defaults,
+            tuple(self.elements),
+            tuple(self.parameters),
+            tuple(self.models),
+            tuple(self.definitions),
+        )
+
+
+@dataclass(slots=True)
+class _Sorting:
+    """What has been sorted so far."""
+
+    files: tuple[SourceFile, ...]
+    open: list[_Open]
+    globals: list[str] = field(default_factory=list)
+    options: list[int] = field(default_factory=list)
+    temperatures: list[int] = field(default_factory=list)
+    requests: list[str] = field(default_factory=list)
+    past: Counter[str] = field(default_factory=Counter)
+    notes: list[ReadingNote] = field(default_factory=list)
+    ended: str = ""
+
+
+def structure(
+    *,
+    path: str,
+    title: str,
+    files: tuple[SourceFile, ...],
+    cards: tuple[Card, ...],
+    scripts: tuple[tuple[str, ...], ...],
+    faults: tuple[Diagnostic, ...],
+) -> Netlist:
+    """Sort the cards of all files into definitions, hints and what is read past; parse those that are read.
+
+    Raises NetlistError with the faults found before and here.
+    """
+    sorting = _Sorting(files, [_Open("", TOP)])
+    found = list(faults)
+    items: list[tuple[Item, ...]] = []
+    for number, card in enumerate(cards):
+        site = Site(files, card)
+        try:
+            items.append(_sort(sorting, number, site))
+        except NetlistError as error:
+            found.extend(error.diagnostics)
+            items.append(())
+    for unclosed in sorting.open[1:]:
+        site = Site(files, cards[unclosed.card])
+        found.extend(site.fault(0, "this subcircuit is never closed", "close it with .ends", wide=7).diagnostics)
+    if found:
+        raise gather(found, files)
+    for script in scripts:
+        lines = "line" if len(script) == 1 else "lines"
+        sorting.past[f".control block of {len(script)} {lines}"] += 1
+    return Netlist(
+        path=path,
+        title=title,
+        files=files,
+        cards=cards,
+        items=tuple(items),
+        top=sorting.open[0].closed(),
+        globals=tuple(sorting.globals),
+        options=tuple(sorting.options),
+        temperatures=tuple(sorting.temperatures),
+        requests=tuple(sorting.requests) + tuple(line for script in scripts for line in script),
+        past=tuple(sorting.past.items()),
+        sha256="",
+        notes=tuple(sorting.notes),
+    )
+
+
+def _sort(sorting: _Sorting, number: int, site: Site) -> tuple[Item, ...]:
+    """Put one card where it belongs and give its items."""
+    text = site.card.text
+    word = text.split(maxsplit=1)[0]
+    head = word.lower()
+    if sorting.ended and head != ".end":
+        sorting.notes.append(ReadingNote(site.where, f"cards behind .end ({sorting.ended}) are read, as ngspice does"))
+        sorting.ended = ""
+    if not head.startswith("."):
+        sorting.open[-1].elements.append(number)
+        if word[0].upper() not in READ:
+            return ()
+        items = parse_card(site)
+        _count(sorting.past, word[0].upper(), items)
+        return items
+    if head in ANALYSES:
+        sorting.past["analysis"] += 1
+        sorting.requests.append(text)
+        return ()
+    if head in OUTPUTS:
+        sorting.past[OUTPUTS[head]] += 1
+        sorting.requests.append(text)
+        return ()
+    if head in WITHOUT_EFFECT:
+        sorting.past[head] += 1
+        return ()
+    if head in NOT_YET:
+        raise site.fault(0, f"{head} is not supported by this version", wide=len(word))
+    if head in OPTIONS:
+        items = parse_card(site)
+        settings = option_settings(site, items)
+        sorting.options.append(number)
+        sorting.past["option"] += sum(fold(setting.name.text) not in EFFECTIVE for setting in settings)
+        return items
+    sort = _DOT_CARDS.get(head)
+    if sort is None:
+        raise site.fault(0, f"there is no card {visible(word)}", nearest(head, KNOWN), wide=len(word))
+    return sort(sorting, number, site)
+
+
+def _count(past: Counter[str], letter: str, items: tuple[Item, ...]) -> None:
+    """Count what an element card may carry without effect on operating point and AC."""
+    for item in flattened(items):
+        if isinstance(item, Setting):
+            name = fold(item.name.text)
+            if name in ("ic", "icvbe", "icvce"):
+                past["initial condition"] += 1
+            elif name == "noisy":
+                past["noise switch"] += 1
+        elif letter in "VI" and isinstance(item, Word) and fold(item.text) in TIME_FUNCTIONS:
+            past["time function"] += 1
+
+
+def _subckt(sorting: _Sorting, number: int, site: Site) -> tuple[Item, ...]:
+    if len(sorting.open) > MOST_NESTED_DEFINITIONS:
+        raise site.fault(0, f"subcircuits are defined more than {MOST_NESTED_DEFINITIONS} deep", wide=7)
+    # Opened before anything can go wrong, so that its .ends finds it.
+    opened = _Open("", number)
+    sorting.open.append(opened)
+    items = parse_card(site)
+    flat = [item for item in flattened(items[1:]) if not (isinstance(item, Word) and fold(item.text) == "params:")]
+    words = [item for item in flat if isinstance(item, Word)]
+    if not words:
+        raise site.fault(len(site.card.text), "the subcircuit's name is missing", "write .subckt name node1 node2 ..")
+    opened.name = words[0].text
+    for item in flat:
+        if not isinstance(item, Word | Setting):
+            raise site.fault(item, "a node or name=value is expected here")
+    opened.ports = tuple(words[1:])
+    opened.defaults = tuple(item for item in flat if isinstance(item, Setting))
+    seen: set[str] = set()
+    for port in opened.ports:
+        if fold(port.text) in seen:
+            raise site.fault(port, f"port {port.text!r} is named twice")
+        seen.add(fold(port.text))
+    return items
+
+
+def _ends(sorting: _Sorting, _number: int, site: Site) -> tuple[Item, ...]:
+    if len(sorting.open) == 1:
+        raise site.fault(0, "no subcircuit is open here", "delete this line, or write .subckt before", wide=5)
+    definition = sorting.open.pop().closed()
+    enclosing = sorting.open[-1]
+    twin = next((other for other in enclosing.definitions if fold(other.name) == fold(definition.name)), None)
+    if twin is not None:
+        says = f"subcircuit {definition.name} is defined twice; the first definition counts, as in ngspice"
+        sorting.notes.append(ReadingNote(site.where, says))
+        return ()
+    enclosing.definitions.append(definition)
+    return ()
+
+
+def _model(sorting: _Sorting, number: int, site: Site) -> tuple[Item, ...]:
+    items = parse_card(site)
+    if len(items) < 2 or not isinstance(items[1], Word):
+        raise site.fault(
+            len(site.card.text), "the model's name is missing", "write .model name type (parameter=value ..)"
+        )
+    sorting.open[-1].models.append(number)
+    return items
+
+
+def _param(sorting: _Sorting, number: int, site: Site) -> tuple[Item, ...]:
+    items = parse_assignments(site)
+    sorting.open[-1].parameters.append(number)
+    return items
+
+
+def _global(sorting: _Sorting, _number: int, site: Site) -> tuple[Item, ...]:
+    items = parse_card(site)
+    for item in items[1:]:
+        if not isinstance(item, Word):
+            raise site.fault(item, "the name of a node is expected here")
+        sorting.globals.append(fold(item.text))
+    return items
+
+
+def _temp(sorting: _Sorting, number: int, site: Site) -> tuple[Item, ...]:
+    items = parse_card(site)
+    values = [item for item in flattened(items[1:]) if not isinstance(item, Setting)]
+    if not values:
+        raise site.fault(len(site.card.text), "the temperature is missing", "write .temp 27")
+    if len(items) != 2:
+        raise site.fault(items[2], "one temperature at a time", "run once for each temperature")
+    sorting.temperatures.append(number)
+    return items
+
+
+def _end(sorting: _Sorting, _number: int, site: Site) -> tuple[Item, ...]:
+    if site.card.file == 0:
+        sorting.ended = site.where
+    return ()
+
+
+def _endc(_sorting: _Sorting, _number: int, site: Site) -> tuple[Item, ...]:
+    raise site.fault(0, "no .control block is open here", "delete this line", wide=5)
+
+
+def _title(_sorting: _Sorting, _number: int, site: Site) -> tuple[Item, ...]:
+    raise site.fault(0, "the title is the first line of the netlist", "write it there", wide=6)
+
+
+_DOT_CARDS: dict[str, Callable[[_Sorting, int, Site], tuple[Item, ...]]] = {
+    ".subckt": _subckt,
+    ".macro": _subckt,
+    ".ends": _ends,
+    ".eom": _ends,
+    ".model": _model,
+    ".param": _param,
+    ".global": _global,
+    ".temp": _temp,
+    ".end": _end,
+    ".endc": _endc,
+    ".title": _title,
+}
