@@ -1,136 +1,308 @@
-"""Circuits for tests, written as short cards, without the netlist room.
+"""Small-signal networks of worked examples and of our own, for tests of the hand side and of causes.
 
-`board("VIN in 0 1", "R1 in out 1k", ...)` gives a Circuit: R, C, L, V, I, G and Q cards with plain numbers or short
-suffixes (meg for 10^6), Q and I with name=value parameters. Voltage and current sources take their DC value.
+Every function names its source. Values that a source derives (gm from a bias current, C_pi from f_T) are derived the
+same way.
 """
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+import math
+from collections.abc import Callable
 
-import numpy as np
-
-from tauledger.circuit import GROUND, Circuit, Drive, Element, Model, Passives, Port, fold
-
-SUFFIXES = {"meg": 1e6, "f": 1e-15, "p": 1e-12, "n": 1e-9, "u": 1e-6, "m": 1e-3, "k": 1e3, "g": 1e9}
-
-# An npn and a pnp of nobody in particular: every part of the model is there, so that leaving one out shows.
-NPN = Model(
-    "qn",
-    "npn",
-    1,
-    tuple(
-        {
-            **{"is": 5e-15, "bf": 180.0, "br": 3.0, "vaf": 60.0, "var": 15.0, "ikf": 0.08, "ise": 1e-14, "ne": 1.7},
-            **{"rb": 90.0, "rc": 12.0, "re": 1.1, "xcjc": 0.6},
-            **{"cje": 8e-12, "vje": 0.7, "mje": 0.35, "cjc": 4e-12, "vjc": 0.6, "mjc": 0.33},
-            **{"cjs": 2e-12, "vjs": 0.6, "mjs": 0.4, "fc": 0.5},
-            **{"tf": 4e-10, "xtf": 3.0, "vtf": 5.0, "itf": 0.1, "tr": 5e-8, "xtb": 1.5},
-        }.items()
-    ),
-    card=0,
-    path=0,
+from tauledger.circuit import Port
+from tauledger.devices.parts import (
+    Part,
+    capacitance,
+    conductance,
+    current_source,
+    inductance,
+    resistance,
+    transconductance,
+    voltage_source,
 )
-PNP = Model("qp", "pnp", 1, NPN.parameters, card=0, path=0)
+from tauledger.network.assemble import Network
+
+Board = Callable[[], Network]
+
+K, M = 1e3, 1e6
+MILLI, MICRO, NANO, PICO, FEMTO = 1e-3, 1e-6, 1e-9, 1e-12, 1e-15
 
 
-def changed(model: Model, name: str = "", /, **parameters: float) -> Model:
-    """Give the model with some parameters (folded names) set otherwise, under another name if asked."""
-    values = {**dict(model.parameters), **parameters}
-    return Model(name or model.name, model.type, model.level, tuple(values.items()), model.card, model.path)
+def stage(
+    owner: str,
+    control: str,
+    output: str,
+    common: str,
+    gm: float,
+    *,
+    c_pi: float = 0.0,
+    c_mu: float = 0.0,
+    r_pi: float = math.inf,
+    r_o: float = math.inf,
+) -> list[Part]:
+    """A hybrid-pi; what has no value is left out."""
+    parts = [transconductance(owner, (output, common), (control, common), gm, "gm")]
+    if math.isfinite(r_pi):
+        parts.append(resistance(owner, control, common, r_pi, "g_pi"))
+    if math.isfinite(r_o):
+        parts.append(resistance(owner, output, common, r_o, "g_o"))
+    if c_pi:
+        parts.append(capacitance(owner, control, common, c_pi, "c_pi"))
+    if c_mu:
+        parts.append(capacitance(owner, control, output, c_mu, "c_mu"))
+    return parts
 
 
-def number(text: str) -> float:
-    """Read a number with at most one suffix."""
-    for suffix, factor in SUFFIXES.items():
-        if text.endswith(suffix):
-            return float(f"{float(text.removesuffix(suffix)) * factor:.15g}")
-    return float(text)
+def driven(*parts: Part | list[Part]) -> Network:
+    """Put 1 V at node "s" in front of the parts and take v(out)."""
+    flat = [part for item in parts for part in (item if isinstance(item, list) else [item])]
+    return Network.from_parts([voltage_source("VS", "s", "0", 1.0), *flat], output=Port("out"))
 
 
-def board(
-    *cards: str,
-    models: tuple[Model, ...] = (NPN, PNP),
-    drive: Mapping[str, complex] | None = None,
-    output: str | Port = "out",
-    temperature_c: float = 27.0,
-    tnom_c: float = 27.0,
-    options: tuple[tuple[str, float], ...] = (),
-) -> Circuit:
-    """Build a circuit from cards.
-
-    drive: AC amplitude by source name. output: a node, or a port. Only models that a card names are kept.
-    """
-    nodes: dict[str, tuple[int, str]] = {GROUND: (0, GROUND)}
-
-    def node(name: str) -> int:
-        return nodes.setdefault(fold(name), (len(nodes), name))[0]
-
-    passives: list[tuple[str, str, int, int, float, int]] = []
-    elements: list[Element] = []
-    for card, line in enumerate(cards, start=1):
-        name, *words = line.split()
-        letter = name[0].upper()
-        given = dict(word.split("=") for word in words if "=" in word)
-        plain = [word for word in words if "=" not in word]
-        parameters = [(fold(key), number(value)) for key, value in given.items()]
-        model = ""
-        match letter:
-            case "R" | "C" | "L":
-                passives.append((letter, name, node(plain[0]), node(plain[1]), number(plain[2]), card))
-                continue
-            case "V" | "I":
-                ends, parameters = plain[:2], [("dc", number(plain[2])), *parameters]
-            case "G":
-                ends, parameters = plain[:4], [("gain", number(plain[4])), *parameters]
-            case "Q":
-                ends, model = plain[:-1], plain[-1]
-            case _:
-                raise ValueError(line)
-        numbers = tuple(node(end) for end in ends)
-        elements.append(Element(letter, name, numbers, model, tuple(parameters), card, 0))
-    kinds = {fold(element.name): element.letter for element in elements}
-    return Circuit(
-        title="a board",
-        nodes=tuple(name for _, name in nodes.values()),
-        passives=Passives(
-            "".join(p[0] for p in passives),
-            tuple(p[1] for p in passives),
-            np.array([p[2] for p in passives], dtype=np.int32),
-            np.array([p[3] for p in passives], dtype=np.int32),
-            np.array([p[4] for p in passives], dtype=float),
-            np.array([p[5] for p in passives], dtype=np.int32),
-            np.zeros(len(passives), dtype=np.int32),
-        ),
-        elements=tuple(elements),
-        models=tuple(model for model in models if any(e.model == model.name for e in elements)),
-        drive=tuple(
-            Drive(source, "voltage" if kinds[fold(source)] == "V" else "current", amplitude)
-            for source, amplitude in (drive or {}).items()
-        ),
-        output=output if isinstance(output, Port) else Port(output),
-        temperature_c=temperature_c,
-        tnom_c=tnom_c,
-        options=options,
+def common_source(
+    source: float,
+    gm: float,
+    load: float,
+    c_gs: float,
+    c_gd: float,
+    c_l: float = 0.0,
+    *,
+    extra: tuple[Part, ...] = (),
+) -> Network:
+    """R_S into the gate, C_gs, C_gd, R_L beside C_L."""
+    return driven(
+        resistance("RS", "s", "g", source),
+        stage("M1", "g", "out", "0", gm, c_pi=c_gs, c_mu=c_gd),
+        resistance("RL", "out", "0", load),
+        [capacitance("CL", "out", "0", c_l)] if c_l else [],
+        *extra,
     )
 
 
-def preamp(**keywords: float) -> Circuit:
-    """Give a one-transistor common-emitter stage, coupled in and out, emitter bypassed, at the temperature asked."""
-    return board(
-        "VCC vcc 0 12",
-        "VIN echo 0 0",
-        "RS echo in 600",
-        "C1 in b 220n",
-        "R1 vcc b 47k",
-        "R2 b 0 12k",
-        "RC vcc c 3.9k",
-        "RE e 0 1.5k",
-        "CE e 0 4.7u",
-        "Q1 c b e qn",
-        "C3 c out 100n",
-        "RL out 0 10k",
-        "CL out 0 100p",
-        drive={"VIN": 1.0},
-        temperature_c=keywords.get("temperature_c", 27.0),
+def common_emitter_1ma() -> Network:
+    """Kumar and Jain, Electronic Devices and Circuits (PHI), Ex. 10.7: I_C 1 mA, V_T 25 mV, beta 125, f_T 300 MHz."""
+    gm = 1 * MILLI / (25 * MILLI)
+    c_mu = 0.5 * PICO
+    return driven(
+        resistance("RS", "s", "b", 300),
+        stage("Q1", "b", "out", "0", gm, r_pi=125 / gm, c_pi=gm / (2 * math.pi * 300 * M) - c_mu, c_mu=c_mu),
+        resistance("RC", "out", "0", 1.2 * K),
     )
+
+
+def two_common_source_stages() -> Network:
+    """Gray, Hurst, Lewis and Meyer, 5th ed. (2009), sec. 7.3.3 example, Figs 7.27 and 7.28."""
+    return driven(
+        resistance("RS", "s", "g1", 10 * K),
+        stage("M1", "g1", "d1", "0", 3 * MILLI, c_pi=5 * PICO, c_mu=1 * PICO),
+        resistance("RL1", "d1", "0", 10 * K),
+        capacitance("Cdb1", "d1", "0", 2 * PICO),
+        stage("M2", "d1", "out", "0", 6 * MILLI, c_pi=10 * PICO, c_mu=1 * PICO),
+        resistance("RL2", "out", "0", 5 * K),
+        capacitance("Cdb2", "out", "0", 2 * PICO),
+    )
+
+
+def two_common_emitter_stages() -> Network:
+    """Kumar and Jain, Electronic Devices and Circuits (PHI), Ex. 10.12."""
+    return driven(
+        resistance("RS", "s", "b1", 600),
+        stage("Q1", "b1", "c1", "0", 0.1, r_pi=1.2 * K, c_pi=24.5 * PICO, c_mu=0.5 * PICO),
+        resistance("RC1", "c1", "0", 1.5 * K),
+        stage("Q2", "c1", "out", "0", 0.05, r_pi=2.4 * K, c_pi=19.5 * PICO, c_mu=0.5 * PICO),
+        resistance("RC2", "out", "0", 600),
+    )
+
+
+def emitter_follower(c_mu: float = 0.0) -> Network:
+    """Gray, Hurst, Lewis and Meyer, 5th ed. (2009), sec. 7.2.3.1 example: 1 mA, V_T 26 mV, beta 100, C_pi 10 pF."""
+    gm = 1 / 26
+    return driven(
+        resistance("RS", "s", "i", 50),
+        resistance("Rb", "i", "b", 150),
+        stage("Q1", "b", "0", "out", gm, r_pi=100 / gm, c_pi=10 * PICO, c_mu=c_mu),
+        resistance("RL", "out", "0", 2 * K),
+    )
+
+
+def common_gate() -> Network:
+    """Sedra and Smith, Microelectronic Circuits, 8th ed., Ex. 10.6: r_o, R_L, R_sig 20 kohm, C_gd + C_L 30 fF."""
+    return driven(
+        resistance("Rsig", "s", "e", 20 * K),
+        stage("M1", "0", "out", "e", 2 * MILLI, r_o=20 * K, c_pi=20 * FEMTO),
+        resistance("RL", "out", "0", 20 * K),
+        capacitance("CL", "out", "0", 30 * FEMTO),
+    )
+
+
+def cascode() -> Network:
+    """A MOS cascode, values of common practice: r_o 100 kohm, g_m 2 mS, R_L 50 kohm, R_sig 5 kohm."""
+    return driven(
+        resistance("Rsig", "s", "g", 5 * K),
+        stage("M1", "g", "x", "0", 2 * MILLI, r_o=100 * K, c_pi=100 * FEMTO, c_mu=30 * FEMTO),
+        capacitance("Cx", "x", "0", 120 * FEMTO),
+        stage("M2", "0", "out", "x", 2 * MILLI, r_o=100 * K),
+        resistance("RL", "out", "0", 50 * K),
+        capacitance("Cout", "out", "0", 80 * FEMTO),
+    )
+
+
+def cascode_with_high_load() -> Network:
+    """Carusone, Johns and Martin, 2nd ed. (2012), Ex. 4.13: R_L = g_m·r_ds² = 10 Mohm, so the output falls first."""
+    return driven(
+        resistance("Rs", "s", "g", 180 * K),
+        stage("M1", "g", "x", "0", 1 * MILLI, r_o=100 * K, c_pi=0.2 * PICO, c_mu=15 * FEMTO),
+        capacitance("Cs2", "x", "0", 0.26 * PICO),
+        stage("M2", "0", "out", "x", 1 * MILLI, r_o=100 * K),
+        resistance("RL", "out", "0", 10 * M),
+        capacitance("Cout", "out", "0", 5.055 * PICO),
+    )
+
+
+def source_follower_with_load() -> Network:
+    """Carusone, Johns and Martin, 2nd ed. (2012), Ex. 4.16: R_in 18 kohm, G_s 0.18 mS, C_s 0.2 pF."""
+    return Network.from_parts(
+        [
+            current_source("IS", "0", "g", 1.0),
+            resistance("Rin", "g", "0", 18 * K),
+            capacitance("Cin", "g", "0", 10.7 * FEMTO),
+            *stage("M1", "g", "0", "out", 0.735 * MILLI, c_pi=3 * FEMTO),
+            conductance("Gs1", "out", "0", 0.18 * MILLI),
+            capacitance("Cs", "out", "0", 0.2 * PICO),
+        ],
+        output=Port("out"),
+    )
+
+
+def compensated_stage() -> Network:
+    """Gray, Hurst, Lewis and Meyer, 5th ed. (2009), sec. 7.3.6 example, Fig. 7.35: C_f 20 pF around g_m 3 mA/V."""
+    return common_source(10 * K, 3 * MILLI, 10 * K, 1 * PICO, 20 * PICO)
+
+
+def common_source_100k() -> Network:
+    """Sedra and Smith, Microelectronic Circuits, 5th-7th ed., common-source example (from memory)."""
+    extra = (resistance("RG", "g", "0", 4.7 * M), resistance("ro", "out", "0", 150 * K))
+    return common_source(100 * K, 1 * MILLI, 7.5 * K, 1 * PICO, 0.4 * PICO, extra=extra)
+
+
+def output_pole_first() -> Network:
+    """Our own: 100 kohm into 20 pF of load; the output falls at 159 kHz, Miller puts the gate's pole at 579 kHz."""
+    return common_source(100 * K, 1 * MILLI, 50 * K, 0.2 * PICO, 50 * FEMTO, 20 * PICO)
+
+
+def weak_stage_with_large_bridge() -> Network:
+    """Our own: g_m 0.2 mS and C_gd 10 pF put a right-half-plane zero at 3.2 MHz, 2.6 times above the pole."""
+    return common_source(1 * K, 0.2 * MILLI, 10 * K, 1 * PICO, 10 * PICO)
+
+
+def gain_of_two() -> Network:
+    """Our own: 0.4 pF bridging a non-inverting gain of 2 sees −9 kohm."""
+    return driven(
+        resistance("RS", "s", "a", 10 * K),
+        capacitance("Cp", "a", "0", 1 * PICO),
+        capacitance("Cf", "a", "out", 0.4 * PICO),
+        transconductance("G1", ("0", "out"), ("a", "0"), 2 * MILLI),
+        resistance("RL", "out", "0", 1 * K),
+    )
+
+
+def follower_then_common_source_low_edge() -> Network:
+    """Kumar and Jain, Electronic Devices and Circuits (PHI), Ex. 10.20(a): three coupling and bypass capacitors."""
+    return driven(
+        resistance("RS", "s", "a", 200),
+        capacitance("C1", "a", "g1", 1 * MICRO),
+        resistance("RG1", "g1", "0", 50 * K),
+        stage("M1", "g1", "0", "s1", 10 * MILLI),
+        resistance("RS1", "s1", "0", 250),
+        stage("M2", "s1", "d2", "s2", 10 * MILLI),
+        resistance("RS2", "s2", "0", 150),
+        capacitance("C3", "s2", "0", 5.3 * MICRO),
+        resistance("RD2", "d2", "0", 5 * K),
+        capacitance("C2", "d2", "out", 10 * MICRO),
+        resistance("RL", "out", "0", 10 * K),
+    )
+
+
+def bypassed_emitter(
+    coupling: float = 3.98 * MICRO, emitter: float = 1.5 * K, bypass: float = 406.11 * MICRO
+) -> Network:
+    """R_s 600 ohm, r_pi 1 kohm, beta 100: coupling into the base, R_E beside its bypass."""
+    return driven(
+        resistance("Rs", "s", "a", 600),
+        capacitance("CB", "a", "b", coupling),
+        stage("Q1", "b", "out", "e", 0.1, r_pi=1 * K),
+        resistance("RE", "e", "0", emitter),
+        capacitance("CE", "e", "0", bypass),
+        resistance("RC", "out", "0", 1 * K),
+    )
+
+
+def two_equal_low_edges() -> Network:
+    """Kumar and Jain, Electronic Devices and Circuits (PHI), Ex. 10.15: coupling and bypass at 25 Hz each."""
+    return bypassed_emitter()
+
+
+def three_low_edges() -> Network:
+    """Scilab textbook companion, book 2882, Ex. 9.6 and 9.8: beta 150, r_e 4 ohm; edges of 1376, 422 and 231 Hz."""
+    return driven(
+        resistance("Rs", "s", "a", 600),
+        capacitance("C1", "a", "b", 0.1 * MICRO),
+        resistance("R1", "b", "0", 33 * K),
+        resistance("R2", "b", "0", 10 * K),
+        stage("Q1", "b", "c", "e", 150 / 600, r_pi=600),
+        resistance("RE", "e", "0", 470),
+        capacitance("C2", "e", "0", 50 * MICRO),
+        resistance("RC", "c", "0", 2.2 * K),
+        capacitance("C3", "c", "out", 0.1 * MICRO),
+        resistance("RL", "out", "0", 4.7 * K),
+    )
+
+
+def bypassed_source_without_coupling() -> Network:
+    """Our own: coupled to DC; the bypass alone lifts the gain from 5.6 to 11, pole and zero one octave apart."""
+    return driven(
+        stage("M1", "s", "out", "q", 2 * MILLI),
+        resistance("RS", "q", "0", 500),
+        capacitance("CS", "q", "0", 100 * MICRO),
+        resistance("RD", "out", "0", 5.6 * K),
+        capacitance("CL", "out", "0", 100 * PICO),
+    )
+
+
+def coupled_stage(ratio: float) -> Network:
+    """Our own: R-C coupling into a buffer, R-C to ground behind it; f_H / f_L of the two sections is `ratio`."""
+    return driven(
+        capacitance("CC", "s", "a", 1 / (2 * math.pi * 1e3 * 1e3)),
+        resistance("RG", "a", "0", 1 * K),
+        transconductance("G1", ("0", "out"), ("a", "0"), 1 * MILLI),
+        resistance("RL", "out", "0", 1 * K),
+        capacitance("CL", "out", "0", 1 / (2 * math.pi * 1e3 * 1e3 * ratio)),
+    )
+
+
+def tuned_load() -> Network:
+    """Our own: a tank of 10 µH and 253 pF (3.16 MHz, Q about 25) at the drain."""
+    return driven(
+        resistance("RS", "s", "g", 50),
+        capacitance("CG", "g", "0", 1 * PICO),
+        stage("M1", "g", "out", "0", 5 * MILLI),
+        inductance("L1", "out", "0", 10 * MICRO),
+        capacitance("CT", "out", "0", 253 * PICO),
+        resistance("RL", "out", "0", 5 * K),
+    )
+
+
+UPPER: tuple[Board, ...] = (
+    common_emitter_1ma,
+    two_common_source_stages,
+    two_common_emitter_stages,
+    common_gate,
+    cascode,
+    cascode_with_high_load,
+    source_follower_with_load,
+    compensated_stage,
+    common_source_100k,
+    output_pole_first,
+    weak_stage_with_large_bridge,
+)
+LOWER: tuple[Board, ...] = (follower_then_common_source_low_edge, two_equal_low_edges, three_low_edges)

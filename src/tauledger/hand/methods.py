@@ -30,14 +30,15 @@ def recommended(combined: Combined) -> str | None:
     """Name the simplest method that suits the network, None where a zero near the edge defeats them all.
 
     σ < 0.5 and b1²/b2 > 10: the sum of time constants, simple and on the safe side. 0.5 ≤ σ ≤ 1.5: all time constants
-    as separate poles. Otherwise the two coefficients, with f0 and Q.
+    as separate poles, unless b1 and b2 make a complex pair. Otherwise the two coefficients, with f0 and Q.
     """
     if not combined.stable or combined.all_poles is None or combined.with_zeros is None:
         return None
     if abs(combined.with_zeros / combined.all_poles - 1.0) > ZERO_MATTERS:
         return None
     sigma = combined.sigma
-    if sigma is not None and SPLITTING <= sigma <= PULLING:
+    complex_pair = (combined.coefficients.q or 0.0) > 0.5
+    if sigma is not None and SPLITTING <= sigma <= PULLING and not complex_pair:
         return "all together"
     # Where one time constant counts, a negative b2 comes only from rounding of a single pole.
     dominant = combined.coefficients.separation > SEPARATED or combined.coefficients.b2 <= 0
