@@ -3,13 +3,15 @@
 from __future__ import annotations
 
 import numpy as np
+import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from circuits import board
 from tauledger.devices.catalogue import observations
+from tauledger.engine import grid as grid_module
 from tauledger.engine.client import Engine
-from tauledger.engine.grid import decades, plan
+from tauledger.engine.grid import Grid, decades, plan
 
 
 @settings(derandomize=True, max_examples=60, deadline=None)
@@ -42,6 +44,27 @@ def test_the_engine_lays_out_the_grid_that_was_planned(engine: Engine, start: fl
     engine.bias(circuit, observations(circuit))
     grid = decades(start, start * 10.0**span, points)
     assert np.allclose(engine.sweep(grid).frequency_hz, grid, rtol=1e-11)
+
+
+@settings(derandomize=True, max_examples=60, deadline=None)
+@given(st.floats(1e-2, 1e5), st.integers(1, 8), st.integers(3, 40))
+def test_whole_decades_from_an_odd_start_keep_their_count(engine: Engine, start: float, span: int, points: int) -> None:
+    """ngspice rounds the number of steps down; one bit of the start decides at a whole number of decades."""
+    circuit = board("V1 in 0 0", "R1 in out 1k", "C1 out 0 1n", drive={"V1": 1.0})
+    engine.bias(circuit, observations(circuit))
+    grid = decades(start, start * 10.0**span, points)
+    assert len(grid) == span * points + 1
+    assert np.allclose(engine._run(plan(grid)).frequency_hz, grid, rtol=1e-11)
+
+
+def test_a_grid_that_the_engine_lays_out_otherwise_is_asked_point_by_point(
+    engine: Engine, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    circuit = board("V1 in 0 0", "R1 in out 1k", "C1 out 0 1n", drive={"V1": 1.0})
+    engine.bias(circuit, observations(circuit))
+    monkeypatch.setattr(grid_module, "plan", lambda f: (Grid(7, float(f[0]), float(f[-1]), len(f)),))
+    asked = decades(1.0, 1e3, 20)
+    assert np.allclose(engine.sweep(asked).frequency_hz, asked, rtol=1e-15)
 
 
 def test_single_frequencies_are_exact_and_keep_their_order(engine: Engine) -> None:

@@ -25,6 +25,7 @@ if TYPE_CHECKING:
 
     from tauledger.circuit import Circuit
     from tauledger.engine.deck import Deck
+    from tauledger.engine.grid import Grid
     from tauledger.solution import Bias, Observation, Sweep
 
 INSTALL_HINT = (
@@ -184,39 +185,48 @@ class Engine:
         """
         import numpy as np
 
-        from tauledger.engine.grid import GEOMETRIC_TOLERANCE, plan
-        from tauledger.engine.verdict import judge
-        from tauledger.solution import Sweep
+        from tauledger.engine.grid import GRID_TOLERANCE, plan, singly
 
         if self._loaded is None:
             raise ValueError("no circuit is loaded: ask for the operating point first")
         asked = np.atleast_1d(np.asarray(frequency_hz, dtype=float))
         if not (len(asked) and np.all(np.isfinite(asked)) and np.all(asked > 0.0)):
             raise ValueError("frequencies must be finite and above zero")
+        grids = plan(asked)
+        found = self._run(grids)
+        if len(found.frequency_hz) != len(asked) and len(grids) == 1:
+            # Another version of ngspice may lay out its grid otherwise; single frequencies are the same in all.
+            found = self._run(singly(asked))
+        if len(found.frequency_hz) != len(asked) or np.max(np.abs(found.frequency_hz / asked - 1.0)) > GRID_TOLERANCE:
+            raise EngineError("ngspice solved other frequencies than those asked for")
+        if not np.all(np.isfinite(found.response)):
+            raise EngineError("ngspice's AC response is not finite")
+        return found
+
+    def _run(self, grids: Sequence[Grid]) -> Sweep:
+        """Run AC grids on the loaded circuit; the sweep holds whatever frequencies the engine laid out."""
+        import numpy as np
+
+        from tauledger.engine.verdict import judge
+        from tauledger.solution import Sweep
+
+        assert self._loaded is not None
         circuit, deck = self._loaded
         vectors = _output_vectors(circuit, deck)
-        grids = plan(asked)
         request = {"do": "sweep", "save": not self._saved, "vectors": [name for name, _ in vectors]}
         answers = self._ask({**request, "grids": [(g.points, g.start_hz, g.stop_hz) for g in grids]})["answers"]
         self._saved = True
-
         frequency: list[np.ndarray] = []
         response: list[np.ndarray] = []
-        for grid, answer in zip(grids, answers, strict=True):
+        for answer in answers:
             columns = [answer["frequency"], *answer["vectors"]]
-            has_result = all(values is not None and len(values) == 2 * grid.count for values in columns)
-            verdict = judge((), answer["run"], has_result=has_result, names=deck.says)
+            verdict = judge((), answer["run"], has_result=all(columns), names=deck.says)
             if verdict.state not in ("sound", "stepped"):
                 raise EngineError("ngspice gave no AC response", engine_says=verdict.says[:TELL_AT_MOST])
-            at, *values = (np.array(values).view(complex) for values in columns)
+            at, *values = (np.array(column).view(complex) for column in columns)
             frequency.append(at.real)
             response.append(sum((sign * v for (_, sign), v in zip(vectors, values, strict=True)), np.zeros_like(at)))
-        found, h = np.concatenate(frequency), np.concatenate(response)
-        if np.max(np.abs(found / asked - 1.0)) > GEOMETRIC_TOLERANCE:
-            raise EngineError("ngspice solved other frequencies than those asked for")
-        if not np.all(np.isfinite(h)):
-            raise EngineError("ngspice's AC response is not finite")
-        return Sweep(found, h)
+        return Sweep(np.concatenate(frequency), np.concatenate(response))
 
     def _ask(self, request: Message) -> Message:
         if not self._open:

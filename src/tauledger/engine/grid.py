@@ -8,7 +8,10 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-GEOMETRIC_TOLERANCE = 1e-9
+GRID_TOLERANCE = 1e-9
+# ngspice reads a number to within its last bit and rounds the number of steps down: at a whole number of decades that
+# bit decides. A stop this much higher keeps the count, and moves the frequencies by less than rounding of the sweep.
+STOP_MARGIN = 1e-13
 
 
 @dataclass(frozen=True, slots=True)
@@ -27,7 +30,7 @@ def decades(start_hz: float, stop_hz: float, points: int) -> NDArray[np.float64]
     The number of steps over the whole range is rounded down, as ngspice's `ac dec` does, so that the engine answers all
     of them in one run; a range that holds no whole number of steps has slightly wider ones.
     """
-    steps = max(1, _steps(start_hz, stop_hz, points))
+    steps = max(1, _steps(start_hz, stop_hz * (1.0 + STOP_MARGIN), points))
     return np.geomspace(start_hz, stop_hz, steps + 1)
 
 
@@ -39,13 +42,16 @@ def plan(frequency_hz: NDArray[np.float64]) -> tuple[Grid, ...]:
     n = len(frequency_hz)
     start, stop = float(frequency_hz[0]), float(frequency_hz[-1])
     if n >= 3 and 0.0 < start < stop:
-        points = math.ceil((n - 1) / math.log10(stop / start) * (1.0 - GEOMETRIC_TOLERANCE))
-        geometric = np.geomspace(start, stop, n)
-        if (
-            np.max(np.abs(frequency_hz / geometric - 1.0)) < GEOMETRIC_TOLERANCE
-            and _steps(start, stop, points) == n - 1
-        ):
-            return (Grid(points, start, stop, n),)
+        higher = stop * (1.0 + STOP_MARGIN)
+        points = math.ceil((n - 1) / math.log10(higher / start))
+        same_count = all(_steps(start, end, points) == n - 1 for end in (higher, stop * (1.0 + 2.0 * STOP_MARGIN)))
+        if same_count and np.max(np.abs(frequency_hz / np.geomspace(start, stop, n) - 1.0)) < GRID_TOLERANCE:
+            return (Grid(points, start, higher, n),)
+    return singly(frequency_hz)
+
+
+def singly(frequency_hz: NDArray[np.float64]) -> tuple[Grid, ...]:
+    """Give one run for each frequency (n,)."""
     return tuple(Grid(0, f, f, 1) for f in frequency_hz.tolist())
 
 
