@@ -15,12 +15,12 @@ import numpy as np
 from numpy.typing import NDArray
 
 from tauledger.hand.estimate import LowerRow, SignalNode
+from tauledger.network.poles import cancelled_pairs
 
 Complex = NDArray[np.complex128]
 Real = NDArray[np.float64]
 
 HALF_POWER = 0.5 * math.log(2.0)
-CANCEL_WITHIN = 0.02
 POINTS_PER_DECADE = 60
 
 
@@ -121,18 +121,13 @@ def combine_lower(rows: Sequence[LowerRow], poles: Complex, zeros: Complex) -> C
 
 
 def visible_roots(poles: Complex, zeros: Complex) -> Roots:
-    """Take out every pole that has a zero within 2 % of itself, and that zero: neither is seen at the output."""
-    left = sorted((complex(zero) for zero in zeros), key=_by_magnitude)
-    seen: list[complex] = []
-    cancelled: list[complex] = []
-    for pole in sorted((complex(pole) for pole in poles), key=_by_magnitude):
-        nearest = min(left, key=lambda zero: abs(zero - pole), default=None)
-        if nearest is not None and abs(nearest - pole) <= CANCEL_WITHIN * abs(pole):
-            left.remove(nearest)
-            cancelled.append(pole)
-        else:
-            seen.append(pole)
-    return Roots(np.array(seen, dtype=complex), np.array(left, dtype=complex), np.array(cancelled, dtype=complex))
+    """Take out every pole that a zero cancels (within 2 %), and that zero: neither is seen at the output.
+
+    poles, zeros: rad/s (n,), (m,), both members of every complex pair, in any order.
+    """
+    poles, zeros = _sorted(poles), _sorted(zeros)
+    pole_gone, zero_gone = cancelled_pairs(poles, zeros)
+    return Roots(poles[~pole_gone], zeros[~zero_gone], poles[pole_gone])
 
 
 def coefficients(poles: Complex) -> Coefficients:
@@ -252,5 +247,5 @@ def _first_bracket(grid: Real, poles: Complex, zeros: Complex, level: float) -> 
     return (float(grid[max(first - 1, 0)]), float(grid[first]))
 
 
-def _by_magnitude(root: complex) -> tuple[float, float]:
-    return (abs(root), root.imag)
+def _sorted(roots: Complex) -> Complex:
+    return np.array(sorted((complex(root) for root in roots), key=lambda root: (abs(root), root.imag)), dtype=complex)
