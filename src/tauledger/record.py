@@ -155,14 +155,19 @@ class ResistanceTerm:
 
 @dataclass(frozen=True, slots=True)
 class CapacitanceTerm:
-    """One capacitance at a node with its Miller factor: contributes farad·factor; gain_* is K from this node to
-    its other end."""
+    """One capacitance at a node with its Miller factor: it counts as farad·factor there; gain_* is K to its other end.
+
+    time_constant_s: what it adds to the node's row, with the resistance at its own place (an inner node of a device
+    faces another one than the outer). text: how K came about, empty where the other end is at AC ground.
+    """
 
     part: str
     farad: float
     factor: float
     gain_real: float
     gain_imag: float
+    time_constant_s: float | None = None
+    text: str = ""
 
 
 @dataclass(frozen=True, slots=True)

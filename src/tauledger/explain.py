@@ -1,0 +1,173 @@
+"""Numbers → the explanation beside them: shares, time constants, hand estimate with its working, causes, notes.
+
+Every identity that the algebra promises is checked here in every run; one that fails is a fault of the program and ends
+it. Where the rebuilt network does not agree with ngspice, nothing is explained.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+from typing import Literal
+
+import numpy as np
+
+from tauledger.causes.catalogue import find_causes, find_notes
+from tauledger.causes.cause import Cause, Note
+from tauledger.causes.evidence import EdgeEvidence, Evidence
+from tauledger.hand.budget import part_resistances, signal_nodes
+from tauledger.hand.combine import Combined, combine_lower, combine_upper
+from tauledger.hand.effects import pole_effects
+from tauledger.hand.estimate import HandEstimate
+from tauledger.hand.lower import lower_rows
+from tauledger.hand.methods import methods
+from tauledger.hand.poles import HandPole, hand_poles
+from tauledger.hand.stages import stage_rows
+from tauledger.hand.steps import lower_steps, upper_steps
+from tauledger.network.constants import OpenConstants, open_constants
+from tauledger.network.edges import Edge
+from tauledger.network.identities import (
+    check,
+    open_identities,
+    response_identities,
+    share_identities,
+    short_identities,
+)
+from tauledger.network.lower import ShortConstants, short_constants
+from tauledger.network.recompute import EdgeFrequencies, each_scaled
+from tauledger.network.shares import Shares, find_shares
+from tauledger.network.solve import Complex
+from tauledger.network.spectrum import pole_frequencies, zero_frequencies
+from tauledger.numbers import Numbers
+
+TEN_PERCENT_LESS = 0.9
+
+
+@dataclass(frozen=True, slots=True)
+class Explanation:
+    """What `explain` adds to the numbers.
+
+    shares_high, shares_low: None where there is no such edge. ten_percent_less: both edges with one part at a time 10 %
+    smaller, by part name. open, short: time constants of the upper and lower network, None where the hand side is
+    withheld, as hand is. pole_effects: what each visible pole does to its band edge.
+    """
+
+    shares_high: Shares | None
+    shares_low: Shares | None
+    ten_percent_less: Mapping[str, EdgeFrequencies]
+    open: OpenConstants | None
+    short: ShortConstants | None
+    hand: HandEstimate | None
+    hand_poles: tuple[HandPole, ...]
+    pole_effects: Mapping[complex, float]
+    causes: tuple[Cause, ...]
+    notes: tuple[Note, ...]
+
+
+NOTHING = Explanation(None, None, {}, None, None, None, (), {}, (), ())
+
+
+def explain(numbers: Numbers) -> Explanation:
+    """Explain the numbers; `NOTHING` where the network is not trusted.
+
+    Raises NetworkError where an identity does not hold.
+    """
+    if not numbers.trusted:
+        return NOTHING
+    network, midband, bands, edges = numbers.network, numbers.midband, numbers.bands, numbers.edges
+    check(response_identities(network, midband))
+    shares_high, shares_low = _shares(numbers, edges.f_high), _shares(numbers, edges.f_low)
+    poles, zeros = _roots(numbers)
+    worked = midband.plateau and bands.sound and numbers.poles.stable
+    open_rows, short_rows, hand, upper, lower = None, None, None, None, None
+    if worked:
+        open_rows, short_rows = open_constants(bands), short_constants(bands)
+        check((*open_identities(open_rows), *short_identities(short_rows)))
+        hand, upper, lower = _by_hand(numbers)
+    evidence = Evidence(
+        bands=bands,
+        poles=poles,
+        zeros=zeros,
+        devices=numbers.devices,
+        nodes=hand.nodes if hand else (),
+        capacitors=hand.lower if hand else (),
+        upper=_evidence("f_high", edges.f_high, hand, upper),
+        lower=_evidence("f_low", edges.f_low, hand, lower),
+        stepped=numbers.bias is not None and numbers.bias.stepped,
+    )
+    effects: dict[complex, float] = {}
+    for combined, is_lower in ((upper, False), (lower, True)):
+        if combined is not None:
+            effects.update(pole_effects(combined.roots, lower=is_lower))
+    cancelled = np.array([pole.s for pole in numbers.poles.poles if pole.cancelled], dtype=complex)
+    return Explanation(
+        shares_high=shares_high,
+        shares_low=shares_low,
+        ten_percent_less=each_scaled(network, midband, edges, TEN_PERCENT_LESS),
+        open=open_rows,
+        short=short_rows,
+        hand=hand,
+        hand_poles=hand_poles(
+            poles,
+            cancelled,
+            midband_hz=midband.frequency_hz,
+            upper=upper.coefficients if upper else None,
+            lower=lower.coefficients if lower else None,
+        ),
+        pole_effects=effects,
+        causes=find_causes(evidence),
+        notes=find_notes(evidence),
+    )
+
+
+def _shares(numbers: Numbers, edge: Edge | None) -> Shares | None:
+    if edge is None or edge.hz is None:
+        return None
+    shares = find_shares(numbers.network, numbers.midband, edge.hz, numbers.bands.class_of)
+    check(share_identities(shares))
+    return shares
+
+
+def _roots(numbers: Numbers) -> tuple[Complex, Complex]:
+    """Give poles and zeros of the full network in rad/s, both members of every complex pair."""
+    both = [
+        [s for root in roots for s in ((root.s, root.s.conjugate()) if root.s.imag else (root.s,))]
+        for roots in (numbers.poles.poles, numbers.poles.zeros)
+    ]
+    return np.array(both[0], dtype=complex), np.array(both[1], dtype=complex)
+
+
+def _by_hand(numbers: Numbers) -> tuple[HandEstimate, Combined, Combined]:
+    bands, devices, edges = numbers.bands, numbers.devices, numbers.edges
+    high, low = (edge.hz if edge is not None else None for edge in (edges.f_high, edges.f_low))
+    nodes, capacitors = signal_nodes(bands, devices), lower_rows(bands, devices)
+    upper_poles, lower_poles = pole_frequencies(bands.upper), pole_frequencies(bands.lower)
+    upper = combine_upper(nodes, upper_poles, zero_frequencies(bands.upper, upper_poles))
+    lower = combine_lower(capacitors, lower_poles, zero_frequencies(bands.lower, lower_poles))
+    hand = HandEstimate(
+        nodes=nodes,
+        lower=capacitors,
+        stages=stage_rows(bands, devices),
+        part_resistance=part_resistances(bands, devices),
+        steps=(
+            *upper_steps(nodes, upper, full_hz=high, stable=numbers.poles.stable),
+            *lower_steps(capacitors, lower, full_hz=low, stable=numbers.poles.stable),
+        ),
+        methods=methods(upper, lower, upper_hz=high, lower_hz=low),
+        sigma=upper.sigma,
+        hand_f_high_hz=upper.lowest,
+        hand_f_low_hz=lower.lowest,
+    )
+    return hand, upper, lower
+
+
+def _evidence(
+    name: Literal["f_high", "f_low"], edge: Edge | None, hand: HandEstimate | None, combined: Combined | None
+) -> EdgeEvidence:
+    return EdgeEvidence(
+        edge=name,
+        hz=edge.hz if edge else None,
+        slope=edge.slope if edge else None,
+        combined=combined,
+        steps=tuple(step for step in hand.steps if step.edge == name) if hand else (),
+    )

@@ -1,0 +1,141 @@
+"""The numbers of one circuit under one condition: operating point, rebuilt network, exact and simulated band edges.
+
+`solve` takes a netlist and an engine, `solve_network` a network alone; `recompute` solves the rebuilt network again
+with parts of other value, which is what "rerun" and "10 % less" mean.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from tauledger.circuit import Change, Circuit
+from tauledger.devices.catalogue import linearise, observations
+from tauledger.devices.family import Device
+from tauledger.engine.client import Engine
+from tauledger.engine.grid import decades
+from tauledger.netlist import Netlist, ac_range, elaborate
+from tauledger.network.agreement import Agreement, agreement
+from tauledger.network.assemble import Network
+from tauledger.network.bands import Bands, classify
+from tauledger.network.edges import Edges, find_edges
+from tauledger.network.midband import MidBand, find_midband, frequency_range
+from tauledger.network.poles import PoleZeroMap, find_poles
+from tauledger.network.recompute import EdgeFrequencies, edge_frequencies, scaled
+from tauledger.network.solve import Complex, response
+from tauledger.simulated import Simulated, simulate
+from tauledger.solution import Bias
+
+POINTS_PER_DECADE = 40
+# Beyond this only the rounding of ngspice is left to see; f_H itself may lie higher.
+HIGHEST_HZ = 1e12
+# Agreement above this: the rebuilt network is not the simulated circuit, and nothing that rests on it is given.
+DISAGREES = 1e-3
+
+
+@dataclass(frozen=True, slots=True)
+class Numbers:
+    """All numbers of one circuit under one condition: what a tolerance draw needs.
+
+    poles: of the full network, with zeros. circuit, bias, simulated, agreement: None without netlist and engine.
+    """
+
+    network: Network
+    midband: MidBand
+    bands: Bands
+    edges: Edges
+    poles: PoleZeroMap
+    devices: tuple[Device, ...] = ()
+    circuit: Circuit | None = None
+    bias: Bias | None = None
+    simulated: Simulated | None = None
+    agreement: Agreement | None = None
+
+    @property
+    def trusted(self) -> bool:
+        """Whether the rebuilt network is the simulated circuit, so that what rests on it may be given."""
+        return self.agreement is None or self.agreement.max_relative_error <= DISAGREES
+
+
+def solve(
+    netlist: Netlist,
+    change: Change,
+    engine: Engine,
+    *,
+    drive: str | None = None,
+    output: str | None = None,
+    midband_hz: float | None = None,
+) -> Numbers:
+    """Give the numbers of a netlist under one change: operating point, rebuilt network, exact and simulated edges.
+
+    drive: the one source to drive with 1, None for all with an AC value. output: as on the command line, None for the
+    netlist's own hints. midband_hz: reference frequency in Hz, None to find the plateau.
+    Raises NetlistError or InputError where the circuit cannot be built, EngineError where ngspice gives no result.
+    """
+    circuit = elaborate(netlist, change, drive=drive, output=output)
+    bias = engine.bias(circuit, observations(circuit))
+    linearised = linearise(circuit, bias)
+    network = Network.from_parts(linearised.parts, output=circuit.output)
+    numbers = solve_network(network, devices=linearised.devices, midband_hz=midband_hz)
+    grid = _sweep_grid(numbers, ac_range(netlist))
+    simulated = simulate(engine.sweep, grid, midband=numbers.midband)
+    agreed = agreement(grid, response(network, grid), simulated.sweep.response, numbers.midband.gain)
+    if agreed.max_relative_error > DISAGREES:
+        simulated = simulate(engine.sweep, grid, midband=None)
+    return Numbers(
+        network=network,
+        midband=numbers.midband,
+        bands=numbers.bands,
+        edges=numbers.edges,
+        poles=numbers.poles,
+        devices=linearised.devices,
+        circuit=circuit,
+        bias=bias,
+        simulated=simulated,
+        agreement=agreed,
+    )
+
+
+def solve_network(network: Network, *, devices: tuple[Device, ...] = (), midband_hz: float | None = None) -> Numbers:
+    """Give the exact numbers of a network alone; nothing is simulated.
+
+    Raises NetworkError where the network has no unique solution.
+    """
+    midband = find_midband(network, at_hz=midband_hz)
+    return Numbers(
+        network=network,
+        midband=midband,
+        bands=classify(network, midband),
+        edges=find_edges(network, midband),
+        poles=find_poles(network),
+        devices=devices,
+    )
+
+
+def recompute(numbers: Numbers, scale: Mapping[str, float]) -> EdgeFrequencies:
+    """Give the exact band edges with the named parts' values multiplied: bias and mid-band frequency held.
+
+    scale: factor by part name ("CL", "Q1.c_mu").
+    Raises KeyError where a name belongs to no part.
+    """
+    return edge_frequencies(scaled(numbers.network, scale), numbers.midband)
+
+
+def _sweep_grid(numbers: Numbers, asked: tuple[float, float] | None) -> NDArray[np.float64]:
+    """Lay out the sweep: a decade beyond all poles, two beyond the band edges, and the netlist's own range."""
+    roots: Complex = np.array([pole.s for pole in numbers.poles.poles], dtype=complex)
+    reach = frequency_range(roots, np.array([], dtype=complex)) or (1.0, 1e6)
+    # the range is a thousand times wider than the poles; a hundredth of that is a decade beyond
+    start, stop = reach[0] * 100.0, min(reach[1] / 100.0, HIGHEST_HZ)
+    low, high = numbers.edges.f_low, numbers.edges.f_high
+    if low is not None and low.hz is not None:
+        start = min(start, low.hz / 100.0)
+    if high is not None and high.hz is not None:
+        start = min(start, high.hz / 1e4)
+        stop = max(stop, high.hz * 100.0)
+    if asked is not None:
+        start, stop = min(start, asked[0]), max(stop, asked[1])
+    return decades(start, max(stop, 10.0 * start), POINTS_PER_DECADE)
