@@ -11,10 +11,11 @@ import numpy as np
 from tauledger.circuit import GROUND, Port, fold
 from tauledger.devices.parts import Part
 from tauledger.errors import NetworkError
-from tauledger.network.assemble import Network, assemble, incidence
+from tauledger.network.assemble import Network, assemble
 from tauledger.network.midband import MidBand as MidBand
 from tauledger.network.midband import find_midband as find_midband
-from tauledger.network.solve import Complex, Real, admittance, response
+from tauledger.network.reactances import Reactances, reactances, stamped
+from tauledger.network.solve import Complex, admittance, response
 from tauledger.network.spectrum import pole_frequencies
 
 BandClass = Literal["short", "open", "tuned"]
@@ -55,6 +56,7 @@ def classify(network: Network, midband: MidBand) -> Bands:
 
     A capacitor is short where r = |jω·Z(jω)| / lim s·Z(s) > 0.707, Z being the impedance across it with the capacitor
     itself in place: for one resistance across it r = x/√(1 + x²) with x = ωRC, and capacitors in parallel share one r.
+    The limit is taken in the network of those capacitors that a first round with all of them found short.
     An inductor is open where the dual with the admittance of its branch exceeds 0.707. r > 1.3 is resonance: tuned.
     The gain of the merged network is then compared with |H(f_mid)|; while it is more than 2 % off, the open capacitor
     is shorted that halves the error at least.
@@ -166,31 +168,47 @@ def _passes(network: Network, part: Part) -> bool:
 def _ratios(network: Network, frequency_hz: float) -> dict[str, float]:
     """Give r for every capacitance and inductance."""
     parts = [part for part in network.parts if part.kind in ("capacitance", "inductance")]
-    if frequency_hz == 0.0:
+    if frequency_hz == 0.0 or not parts:
         return {part.name: 0.0 for part in parts}
-    ports = np.zeros((network.size, len(parts)))
-    for k, part in enumerate(parts):
-        if part.kind == "capacitance":
-            ports[:, k] = incidence(network, part.nodes[0], part.nodes[1])
-        else:
-            ports[network.branch(part.owner), k] = 1.0
-    poles = np.abs(pole_frequencies(network))
-    s = np.array([2j * np.pi * frequency_hz, BEYOND_ALL_POLES * max(poles.max(), 2.0 * np.pi * frequency_hz)])
-    seen, limit = np.abs(s[:, None] * _immittance(network, s, ports))
     fixed = _fixed_by_sources(network)
-    return {
-        part.name: 0.0 if part.value == 0.0 or _is_loop(part, fixed) else float(seen[k] / limit[k])
-        for k, part in enumerate(parts)
-    }
+    terms = reactances(network)
+    s = 2.0 * np.pi * frequency_hz
+    seen = s * np.abs(_immittance(network, 1j * s, terms))
+    beyond = BEYOND_ALL_POLES * max(float(np.abs(pole_frequencies(network)).max()), s)
+    limit = beyond * np.abs(_immittance(network, beyond, terms))
 
+    def ratios() -> dict[str, float]:
+        return {
+            part.name: 0.0 if part.value == 0.0 or _is_loop(part, fixed) else float(seen[k] / limit[k])
+            for k, part in enumerate(terms.parts)
+            if part.kind != "transcapacitance"
+        }
 
-def _immittance(network: Network, s: Complex, ports: Real) -> Complex:
-    """Give dᵀ Y(s)⁻¹ d for every column d of ports (n, m) at every s (k,), as (k, m)."""
+    first = ratios()
+    # Beyond all poles a small capacitor is bridged by others that are open at mid-band: they do not stand beside it.
+    acting = {part.name for part in parts if first[part.name] > SHORT_ABOVE}
     try:
-        seen = np.linalg.solve(admittance(network, s), np.broadcast_to(ports, (len(s), *ports.shape)))
+        limit = beyond * np.abs(_limited(network, beyond, terms, acting))
+    except NetworkError:
+        return first
+    return ratios()
+
+
+def _immittance(network: Network, s: complex, terms: Reactances) -> Complex:
+    """Give controlᵀ Y(s)⁻¹ out of every reactive part, (m,): impedance across it, or admittance of its branch."""
+    try:
+        solved = np.linalg.solve(admittance(network, np.array([s], dtype=complex))[0], terms.out)
     except np.linalg.LinAlgError as error:
         raise NetworkError("the small-signal network has no unique solution") from error
-    return np.asarray(np.sum(seen * ports, axis=1), dtype=complex)
+    return np.asarray(np.sum(terms.control * solved, axis=0), dtype=np.complex128)
+
+
+def _limited(network: Network, s: complex, terms: Reactances, acting: set[str]) -> Complex:
+    """Give the immittance of every part in the network of those that act, with the part itself in place, (m,)."""
+    acts = np.array([part.name in acting for part in terms.parts])
+    kept = replace(network, capacitance=stamped(terms, np.where(acts, terms.value, 0.0)))
+    immittance = _immittance(kept, s, terms)
+    return np.where(acts, immittance, immittance / (1.0 + s * terms.value * immittance))
 
 
 def _fixed_by_sources(network: Network) -> dict[str, str]:

@@ -21,7 +21,7 @@ from tauledger.network.solve import log_slope, on_axis, solve
 
 SUMS = 1e-9
 # A coupling capacitor of 100 µF is 10⁶ S at a few GHz: rounding alone makes 1e-8 of the currents beside it.
-AT_AN_EDGE = 1e-6
+ON_THE_AXIS = 1e-6
 POLES = 1e-6
 
 
@@ -87,7 +87,7 @@ def share_identities(shares: Shares) -> tuple[Identity, ...]:
     """Σ shares + defect = 1."""
     scale = 1.0 + sum(abs(value) for value in shares.parts.values())
     total = sum(shares.parts.values()) + shares.defect
-    return (Identity("shares and defect add to 1", total, 1.0, AT_AN_EDGE, scale),)
+    return (Identity("shares and defect add to 1", total, 1.0, ON_THE_AXIS, scale),)
 
 
 def response_identities(network: Network, midband: MidBand) -> tuple[Identity, ...]:
@@ -103,5 +103,7 @@ def response_identities(network: Network, midband: MidBand) -> tuple[Identity, .
     if midband.frequency_hz > 0.0:
         omega = 2.0 * np.pi * midband.frequency_hz
         slope = -float(log_slope(network, at)[0].imag) / omega
-        identities.append(Identity("delays of all parts = group delay", sum(delays.values()), slope, SUMS, scale))
+        identities.append(
+            Identity("delays of all parts = group delay", sum(delays.values()), slope, ON_THE_AXIS, scale)
+        )
     return tuple(identities)

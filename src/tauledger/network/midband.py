@@ -15,6 +15,7 @@ FLAT_SLOPE = 0.10  # d ln|H| / d ln f, 2 dB per decade
 LEVEL_SLOPE = 1e-3
 PLATEAU_DECADES = 0.5
 SAME_GAIN = 10.0 ** (-3.0 / 20.0)
+PEAK = 1.01
 POINTS_PER_DECADE = 40
 MARGIN = 1e3
 
@@ -70,8 +71,8 @@ def find_midband(network: Network, *, at_hz: float | None = None) -> MidBand:
 
     at_hz: take this frequency instead; its plateau's extent is given where it lies on one.
     Among plateaus within 3 dB of the highest gain the widest is taken. The reference is 0 where that plateau reaches
-    DC, else the stationary point of |H| nearest its middle, so that it does not move to first order; without a plateau
-    it is the maximum of |H|.
+    DC, else the stationary point of |H| nearest its middle, so that it does not move to first order (where |H| has none
+    but a peak at the plateau's end, the flattest point); without a plateau it is the maximum of |H|.
     Raises InputError where at_hz is negative or the response is zero there, NetworkError where it is zero everywhere.
     """
     scan = _scan(network)
@@ -82,7 +83,7 @@ def find_midband(network: Network, *, at_hz: float | None = None) -> MidBand:
         highest = max(plateau.gain for plateau in plateaus)
         near = [plateau for plateau in plateaus if plateau.gain >= highest * SAME_GAIN]
         best = max(near, key=lambda plateau: (plateau.decades, plateau.gain))
-        frequency = 0.0 if best.from_hz == 0.0 and _direct(network) else _stationary(network, scan, best)
+        frequency = 0.0 if best.from_hz == 0.0 and _direct(network) else _reference(network, scan, best)
         return MidBand(frequency, best.from_hz, best.to_hz, complex(response(network, np.array([frequency]))[0]))
     peak = int(np.argmax(scan.magnitude))
     frequency = float(scan.frequency_hz[peak])
@@ -132,7 +133,7 @@ def _plateau(network: Network, scan: _Scan, first: int, last: int) -> _Plateau:
         to_hz = float("inf")
     if from_hz == 0.0 and _direct(network):
         return _Plateau(first, last, from_hz, to_hz, 0.0, float(scan.magnitude[first]))
-    at = _stationary_point(scan, first, last)
+    at = _reference_point(scan, first, last)
     return _Plateau(first, last, from_hz, to_hz, float(scan.frequency_hz[at]), float(scan.magnitude[at]))
 
 
@@ -143,18 +144,27 @@ def _boundary(scan: _Scan, a: int, b: int) -> float:
     return float(scan.frequency_hz[a] * (scan.frequency_hz[b] / scan.frequency_hz[a]) ** share)
 
 
-def _stationary_point(scan: _Scan, first: int, last: int) -> int:
-    """Give the point before the slope's change from + to − nearest the run's middle, else that of the least slope."""
+def _reference_point(scan: _Scan, first: int, last: int) -> int:
+    """Give the point before the slope's fall through zero nearest the run's middle, else the flattest one there.
+
+    A fall through zero that lies on a rise of more than 1 % above the flattest point is a peak at the plateau's end,
+    and no reference.
+    """
     slope, place = scan.slope[first : last + 1], np.log(scan.frequency_hz[first : last + 1])
+    middle = 0.5 * (place[0] + place[-1])
+    steep = np.concatenate([[np.inf], np.abs(slope), [np.inf]])
+    flattest = np.flatnonzero((steep[1:-1] <= steep[:-2]) & (steep[1:-1] <= steep[2:]))
+    flat = int(flattest[np.argmin(np.abs(place[flattest] - middle))])
     falls = np.flatnonzero((slope[:-1] > 0.0) & (slope[1:] <= 0.0))
     if len(falls):
-        middle = 0.5 * (place[0] + place[-1])
-        return first + int(falls[np.argmin(np.abs(0.5 * (place[falls] + place[falls + 1]) - middle))])
-    return first + int(np.argmin(np.abs(slope)))
+        fall = int(falls[np.argmin(np.abs(0.5 * (place[falls] + place[falls + 1]) - middle))])
+        if scan.magnitude[first + fall] <= PEAK * scan.magnitude[first + flat]:
+            return first + fall
+    return first + flat
 
 
-def _stationary(network: Network, scan: _Scan, plateau: _Plateau) -> float:
-    at = _stationary_point(scan, plateau.first, plateau.last)
+def _reference(network: Network, scan: _Scan, plateau: _Plateau) -> float:
+    at = _reference_point(scan, plateau.first, plateau.last)
     if at < plateau.last and scan.slope[at] > 0.0 >= scan.slope[at + 1]:
         return _bisect(network, float(scan.frequency_hz[at]), float(scan.frequency_hz[at + 1]))
     return float(scan.frequency_hz[at])

@@ -11,7 +11,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from tauledger.devices.parts import Part
-from tauledger.network.assemble import Network, incidence
+from tauledger.network.assemble import Network, Triplets, incidence
 from tauledger.network.solve import Complex, Real, Solution
 
 REACTIVE = ("capacitance", "inductance", "transcapacitance")
@@ -52,3 +52,10 @@ def moments(terms: Reactances, solution: Solution) -> Complex:
     response = solution.response[:, None]
     moment: Complex = terms.value * (solution.adjoint @ terms.out) * (solution.x @ terms.control) / response
     return moment
+
+
+def stamped(terms: Reactances, value: Real) -> Triplets:
+    """Give C = Σ value · out · controlᵀ for other values (m,) of the same parts."""
+    c = (terms.out * value) @ terms.control.T
+    row, column = np.nonzero(c)
+    return Triplets(row, column, c[row, column])

@@ -1,0 +1,86 @@
+"""Random amplifiers obey the identities that every run checks on itself."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+
+import numpy as np
+import pytest
+from hypothesis import given, settings
+from strategies import networks
+
+from tauledger.errors import NetworkError
+from tauledger.network.assemble import Network
+from tauledger.network.bands import classify, find_midband
+from tauledger.network.constants import open_constants
+from tauledger.network.edges import find_edges
+from tauledger.network.identities import (
+    Identity,
+    check,
+    open_identities,
+    response_identities,
+    share_identities,
+    short_identities,
+)
+from tauledger.network.lower import short_constants
+from tauledger.network.shares import find_shares
+from tauledger.network.spectrum import zero_frequencies
+
+few = settings(max_examples=25, deadline=None, derandomize=True)
+
+
+@few
+@given(networks())
+def test_open_circuit_time_constants_add_to_the_inverse_poles_and_weighted_to_the_group_delay(network: Network) -> None:
+    bands = classify(network, find_midband(network))
+    check(open_identities(open_constants(bands)))
+
+
+@few
+@given(networks())
+def test_group_delay_at_dc_is_the_inverse_zeros_less_the_inverse_poles(network: Network) -> None:
+    bands = classify(network, find_midband(network))
+    constants = open_constants(bands)
+    poles = 1.0 / np.array([complex(s) for s in _poles(bands.upper)])
+    zeros = 1.0 / zero_frequencies(bands.upper, 1.0 / poles)
+    scale = float(np.sum(np.abs(poles)) + np.sum(np.abs(zeros)))
+    assert constants.weighted_sum_s == pytest.approx(float((np.sum(zeros) - np.sum(poles)).real), abs=1e-6 * scale)
+
+
+@few
+@given(networks())
+def test_short_circuit_edges_add_to_the_poles_of_the_lower_network(network: Network) -> None:
+    bands = classify(network, find_midband(network))
+    constants = short_constants(bands)
+    assert constants.sum_hz is not None
+    check(short_identities(constants))
+
+
+@few
+@given(networks())
+def test_shares_add_to_one_less_the_defect_at_both_edges(network: Network) -> None:
+    midband = find_midband(network)
+    bands = classify(network, midband)
+    edges = find_edges(network, midband)
+    check(response_identities(network, midband))
+    for edge in (edges.f_low, edges.f_high):
+        if edge is not None and edge.hz is not None:
+            check(share_identities(find_shares(network, midband, edge.hz, bands.class_of)))
+
+
+def test_a_failing_identity_is_raised_with_both_numbers() -> None:
+    right = Identity("apples = apples", 2.0, 2.0, 1e-9, 2.0)
+    wrong = replace(right, name="apples = pears", right=3.0)
+    assert check([right]) == (right,)
+    with pytest.raises(NetworkError, match="apples = pears: 2 against 3"):
+        check([right, wrong])
+
+
+def test_an_identity_with_a_number_that_is_not_finite_fails() -> None:
+    assert not Identity("nothing = one", float("nan"), 1.0, 1e-9, 1.0).holds
+
+
+def _poles(network: Network) -> list[complex]:
+    from tauledger.network.spectrum import pole_frequencies
+
+    return list(pole_frequencies(network))
