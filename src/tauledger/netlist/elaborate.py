@@ -15,9 +15,9 @@ from tauledger.netlist.flatten import Surroundings, flatten
 from tauledger.netlist.hints import hints
 from tauledger.netlist.items import Setting, Value, flattened
 from tauledger.netlist.netlist import Netlist
-from tauledger.netlist.options import option_settings
+from tauledger.netlist.options import option_settings, plain_value
 from tauledger.netlist.ports import choose_drive, choose_output, parse_port
-from tauledger.netlist.scopes import Binding, Scope, define, number_of, work_out_all
+from tauledger.netlist.scopes import Binding, Scope, define, work_out_all
 
 ABSOLUTE_ZERO_C = -273.15
 ROOM_C = 27.0
@@ -112,7 +112,7 @@ def _settings(netlist: Netlist, change: Change, scope: Scope, faults: list[Diagn
             if name not in ("temp", "tnom", "gmin"):
                 continue
             try:
-                values[name] = number_of(site, setting.value, scope)
+                values[name] = plain_value(site, setting.value, scope)
                 if name == "gmin" and not values[name] >= 0.0:
                     raise site.fault(setting.value, "gmin must be 0 or more")
                 if name != "gmin":
@@ -123,7 +123,7 @@ def _settings(netlist: Netlist, change: Change, scope: Scope, faults: list[Diagn
         site = Site(netlist.files, netlist.cards[number])
         value = next(item for item in flattened(netlist.items[number][1:]) if not isinstance(item, Setting))
         try:
-            values["temp"] = number_of(site, value, scope)
+            values["temp"] = plain_value(site, value, scope)
             _check_temperature(site, value, values["temp"])
         except NetlistError as error:
             faults.extend(error.diagnostics)

@@ -186,9 +186,11 @@ def device(site: Site, card: Fields, family: Family, models: frozenset[str], sco
     for number, extra in enumerate(places[where + 1 :]):
         if isinstance(extra, Word) and fold(extra.text) == "off":
             parameters.append(("off", 1.0))
+        elif _behind_initial_condition(site, extra, card.settings):
+            continue
         elif number == 0 and "area" in family.instance_parameters:
             parameters.append(("area", _positive(site, extra, number_of(site, extra, scope), "area")))
-        elif not _behind_initial_condition(site, extra, card.settings):
+        else:
             raise site.fault(extra, "this is one too many", "write name=value")
     for setting in card.settings:
         name = fold(setting.name.text)

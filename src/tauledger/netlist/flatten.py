@@ -212,9 +212,10 @@ def _model(netlist: Netlist, draft: Draft, found: tuple[Surroundings, int], key:
         if parameter in family.model_parameters:
             values[parameter] = draft.changed_models.pop((owner, parameter))[2]
     card = replace(card, model=replace(card.model, parameters=tuple(values.items())))
-    if len([other for other in home.definition.models if model_name(netlist.items[other]) == key]) > 1:
+    twins = [other for other in home.definition.models if model_name(netlist.items[other]) == key]
+    for twin in twins[1:]:
         says = f"model {name.text} is defined twice; the first definition counts, as in ngspice"
-        home.scope.notes.append(ReadingNote(site.where, says))
+        home.scope.notes.append(ReadingNote(Site(netlist.files, netlist.cards[twin]).where, says))
     home.models[key] = card
     draft.models[fold(flat)] = card.model
     return card

@@ -45,6 +45,14 @@ def hints(netlist: Netlist) -> Hints:
     return Hints(tuple(outputs), *(span or (None, None)))
 
 
+def ac_range(netlist: Netlist) -> tuple[float, float] | None:
+    """Give start and stop in Hz of the netlist's own AC analysis, or None where it has none."""
+    found = hints(netlist)
+    if found.f_start_hz is None or found.f_stop_hz is None:
+        return None
+    return (found.f_start_hz, found.f_stop_hz)
+
+
 def _rank(text: str, words: list[str]) -> int:
     """Order requests: of an AC analysis first, of no analysis in particular next, of another one last."""
     of = words[1] if len(words) > 1 else ""
@@ -65,7 +73,7 @@ def _range(words: list[str]) -> tuple[float, float] | None:
     if len(words) < 5:
         return None
     start, stop = read_number(words[3]), read_number(words[4])
-    if start is None or stop is None or not 0.0 <= start.value <= stop.value < float("inf"):
+    if start is None or stop is None or not 0.0 < start.value <= stop.value < float("inf"):
         return None
     return (start.value, stop.value)
 
