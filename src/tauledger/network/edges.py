@@ -20,7 +20,8 @@ POINTS_PER_DECADE = 60
 SHALLOW_SLOPE = 0.2
 LEVEL_SLOPE = 1e-3
 UNCHANGED = 0.01
-ROUNDING = 1e-14
+# Newton's step squares: one this small leaves rounding alone.
+LAST_STEP = 1e-8
 
 
 @dataclass(frozen=True, slots=True)
@@ -194,7 +195,7 @@ def crossing(network: Network, magnitude: float, a_hz: float, b_hz: float) -> fl
             a = u
         step = u - miss / slope if slope != 0.0 else 0.5 * (a + b)
         following = step if min(a, b) <= step <= max(a, b) else 0.5 * (a + b)
-        if abs(following - u) <= ROUNDING:
+        if abs(following - u) <= LAST_STEP:
             return float(np.exp(following))
         u = following
     return float(np.exp(u))
