@@ -43,7 +43,7 @@ def signal_nodes(upper: Network) -> tuple[SignalNode, ...]:
 
 
 def capacitor_rows(lower: Network) -> tuple[LowerRow, ...]:
-    """One row per capacitor of the lower network, its resistance with all other capacitors shorted."""
+    """One row per capacitor of the lower network, its resistance with the others shorted and inductors open."""
     rows = []
     for part in lower.parts:
         if part.kind != "capacitance":
@@ -53,7 +53,7 @@ def capacitor_rows(lower: Network) -> tuple[LowerRow, ...]:
             if other.kind == "capacitance"
             else other
             for other in lower.parts
-            if other is not part
+            if other is not part and other.kind != "inductance"
         ]
         shorted = Network.from_parts([*others, replace(part, value=0.0)], output=lower.port)
         g = shorted.conductance.dense(shorted.size)
@@ -68,9 +68,11 @@ def capacitor_rows(lower: Network) -> tuple[LowerRow, ...]:
     return tuple(rows)
 
 
-def evidence(network: Network, *, devices: tuple[Device, ...] = (), stepped: bool = False) -> Evidence:
+def evidence(
+    network: Network, *, devices: tuple[Device, ...] = (), stepped: bool = False, at_hz: float | None = None
+) -> Evidence:
     """Walk a network to the evidence that causes and notes look at; band edges from a fine scan of the response."""
-    bands = classify(network, find_midband(network))
+    bands = classify(network, find_midband(network, at_hz=at_hz))
     poles = pole_frequencies(network)
     zeros = zero_frequencies(network, poles)
     nodes: tuple[SignalNode, ...] = ()

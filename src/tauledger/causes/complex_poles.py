@@ -38,14 +38,16 @@ def _complex_poles(edge: EdgeEvidence) -> Cause | None:
             f"take f0 = {coefficients[0]} and Q = {coefficients[1]} instead of one pole per node: "
             f"{in_hertz(combined.two_coefficients)}"
         )
-    separate = "" if combined.exact_constants is None else f", {in_hertz(combined.exact_constants)}"
+    separate = ""
+    if combined.exact_constants is not None:
+        separate = f", and the time constants taken as separate poles give {in_hertz(combined.exact_constants)}"
     return Cause(
         cause="complex-poles",
         quantity=edge.quantity,
         effect=effect,
         where=f"pair at {in_hertz(f0)}",
         says=f"the poles next to the band are a complex pair, f0 = {in_hertz(f0)}, Q = {q:.2f}: "
-        f"the time constants as separate poles{separate}, are not where the poles are",
+        f"no node has a pole of its own{separate}",
         instead=instead,
         numbers=(NamedNumber("f0", f0, "Hz"), NamedNumber("Q", q, "")),
     )

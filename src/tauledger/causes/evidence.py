@@ -7,6 +7,7 @@ from dataclasses import dataclass
 
 from tauledger.causes.cause import Quantity
 from tauledger.devices.family import Device
+from tauledger.devices.parts import Part
 from tauledger.hand.combine import Combined
 from tauledger.hand.estimate import Edge, LowerRow, SignalNode, StepEstimate
 from tauledger.network.bands import Bands
@@ -87,6 +88,11 @@ def nearest_zero(edge: EdgeEvidence) -> complex | None:
     zeros = [complex(zero) for zero in edge.combined.roots.zeros if zero.imag >= 0 and zero != 0]
     choose = min if edge.edge == "f_high" else max
     return choose(zeros, key=abs, default=None)
+
+
+def in_words(part: Part) -> str:
+    """Name a part as the trade does: "CL" for a card, "C_mu of Q1" inside a device."""
+    return f"{part.label[0].upper()}{part.label[1:]} of {part.owner}" if part.label else part.owner
 
 
 def hertz(omega: complex) -> float:

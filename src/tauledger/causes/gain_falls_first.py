@@ -7,7 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from tauledger.causes.cause import Cause
-from tauledger.causes.evidence import Evidence, counted, hertz, in_hertz, interaction_step, move, outward
+from tauledger.causes.evidence import Evidence, counted, hertz, in_hertz, in_words, interaction_step, move, outward
 from tauledger.circuit import GROUND
 from tauledger.hand.estimate import InnerLine, MillerTerm, SignalNode
 from tauledger.network.assemble import Network
@@ -39,12 +39,13 @@ def gain_falls_first(evidence: Evidence) -> Cause | None:
     if not fallen:
         return None
     worst = max(fallen, key=lambda found: found.term.farad * found.term.factor)
+    part = in_words(evidence.bands.network.part(worst.term.part))
     return Cause(
         cause="gain-falls-first",
         quantity="f_H",
         effect=effect,
         where=worst.row.title,
-        says=f"{worst.term.part} counts {worst.term.factor:.3g} times at {worst.row.title}, a pole at "
+        says=f"{part} counts {worst.term.factor:.3g} times at {worst.row.title}, a pole at "
         f"{in_hertz(worst.hand_hz)} by hand; there the gain has fallen and it counts only {worst.factor:.2g} times: "
         f"the second pole is at {in_hertz(hertz(poles[1]))}",
         instead="take both poles from b1 and b2 (1/b1 and b1/b2), not one pole per node",

@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from tauledger.causes.cause import Cause
 from tauledger.causes.evidence import EdgeEvidence, Evidence, hertz, in_hertz, nearest_zero, outward
-from tauledger.quantity import percent
 from tauledger.record import NamedNumber
 
 # b1²/b2 = r + 2 + 1/r of two real poles of ratio r; 10 apart the sum of time constants is 8 % off (closed form).
@@ -33,6 +32,7 @@ def _no_dominant_pole(edge: EdgeEvidence) -> Cause | None:
     effect = combined.sum_of_constants / edge.hz - 1.0
     first, second = hertz(poles[0]), hertz(poles[1])
     kind = "open-circuit" if edge.edge == "f_high" else "short-circuit"
+    off = f"{abs(100 * effect):.2g} % {'low' if effect < 0 else 'high'}"
     instead = "solve the quadratic"
     if combined.two_coefficients is not None:
         instead = f"take both coefficients, not only the sum: they give {in_hertz(combined.two_coefficients)}"
@@ -42,7 +42,7 @@ def _no_dominant_pole(edge: EdgeEvidence) -> Cause | None:
         effect=effect,
         where=f"poles at {in_hertz(first)} and {in_hertz(second)}",
         says=f"no pole dominates: {in_hertz(first)} and {in_hertz(second)} are {_ratio(first, second):.2g} to 1, so "
-        f"the {kind} sum, {in_hertz(combined.sum_of_constants)}, is {percent(effect)} off",
+        f"the {kind} sum, {in_hertz(combined.sum_of_constants)}, comes out {off}",
         instead=instead,
         numbers=(
             NamedNumber("first pole", first, "Hz"),

@@ -133,25 +133,26 @@ def neither_short_nor_open(evidence: Evidence) -> Note | None:
         return None
     names = ", ".join(between)
     say = "is" if len(between) == 1 else "are"
-    each = ", ".join(f"{name} {ratio:.2f}" for name, ratio in between.items())
+    each = ", ".join(f"{ratio:.2f}" for ratio in between.values())
     return Note(
         "neither-short-nor-open",
         names,
-        f"{names} {say} neither short nor open at {in_hertz(evidence.bands.midband.frequency_hz)} (|Z| of the "
-        f"resistance beside it against both in parallel: {each}; 0 is open, 1 is short): figures by hand are rough",
+        f"{names} {say} neither short nor open at {in_hertz(evidence.bands.midband.frequency_hz)} ({each} on a scale "
+        "from 0, open, to 1, short): figures by hand are rough",
     )
 
 
 def tuned(evidence: Evidence) -> Note | None:
     """Reactances in resonance at mid-band."""
-    names = ", ".join(name for name, kind in evidence.bands.class_of.items() if kind == "tuned")
+    names = [name for name, kind in evidence.bands.class_of.items() if kind == "tuned"]
     if not names:
         return None
+    told = ", ".join(names)
     return Note(
         "tuned",
-        names,
-        f"{names} resonates at {in_hertz(evidence.bands.midband.frequency_hz)}: neither short nor open, no time "
-        "constant by hand",
+        told,
+        f"{told} {'is' if len(names) == 1 else 'are'} in resonance at "
+        f"{in_hertz(evidence.bands.midband.frequency_hz)}: neither short nor open, no time constant by hand",
     )
 
 
@@ -170,11 +171,12 @@ def ideal_drive(evidence: Evidence) -> Note | None:
                     "" if terminal.inner == terminal.outer else _own_resistance(network, terminal.outer, terminal.inner)
                 )
                 return _ideal(source, f"{terminal.word} of {device.name} ({terminal.outer})", own)
+    charged = {node for part in evidence.bands.upper.parts if part.kind == "capacitance" for node in part.nodes}
     for part in network.parts:
         if part.kind == "transconductance" and not evidence.devices:
             for node in part.nodes[2:]:
                 source = driven.get(merged[node])
-                if source is not None:
+                if source is not None and merged[node] in charged:
                     return _ideal(source, f"input of {part.owner} ({node})", "")
     return None
 
