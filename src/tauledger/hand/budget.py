@@ -12,13 +12,14 @@ from tauledger.circuit import GROUND
 from tauledger.devices.family import Device
 from tauledger.hand.equivalent import Capacitor, EquivalentCircuit, upper_circuit
 from tauledger.hand.estimate import InnerLine, LookingIn, Resistance, SignalNode, WorkingSource
-from tauledger.hand.figures import compact, ratio
+from tauledger.hand.figures import plain
 from tauledger.hand.looking_in import looking_in
 from tauledger.hand.miller import hand_gain, miller_term
 from tauledger.hand.nodes import Group, Passage, groups, node_name, passages
 from tauledger.network.bands import Bands
 
 ACCEPTED = 0.01
+NOT_WORTH_A_FACTOR = 1e-3
 LEAST_SURE: tuple[WorkingSource, ...] = ("rule", "loop", "branch", "solved")
 
 
@@ -67,17 +68,20 @@ def resistance_across(circuit: EquivalentCircuit, a: str, b: str) -> LookingIn:
         seen, gain = looking_in(circuit, here, name), hand_gain(circuit, here, there)
         sides.append((name, seen, gain))
     ohm = sum(seen.ohm * (1.0 - gain.value) for _, seen, gain in sides)
-    symbols = " + ".join(f"R({name})" if gain.value == 0.0 else f"R({name})·(1 − K)" for name, _, gain in sides)
+    still = [abs(gain.value) < NOT_WORTH_A_FACTOR for _, _, gain in sides]
+    symbols = " + ".join(
+        f"R({name})" if alone else f"R({name})·(1 − K)" for (name, _, _), alone in zip(sides, still, strict=True)
+    )
     values = " + ".join(
-        compact(seen.ohm) if gain.value == 0.0 else f"{compact(seen.ohm)}·{ratio(1.0 - gain.value)}"
-        for _, seen, gain in sides
+        plain(seen.ohm) if alone else f"{plain(seen.ohm)}·{plain(1.0 - gain.value)}"
+        for (_, seen, gain), alone in zip(sides, still, strict=True)
     )
     source = max((source for _, seen, gain in sides for source in (seen.source, gain.source)), key=LEAST_SURE.index)
     parts = tuple(Resistance(f"at {name}", seen.ohm * (1.0 - gain.value)) for name, seen, gain in sides)
     if abs(ohm - exact) > ACCEPTED * abs(exact):
-        text = f"R = {compact(exact)}, solved; {symbols} gives {compact(ohm)}"
+        text = f"R = {plain(exact)}, solved; {symbols} gives {plain(ohm)}"
         return LookingIn(exact, "solved", text, parts, "solved", rule_ohm=ohm)
-    lines = [f"R = {symbols} = {values} = {compact(ohm)}"]
+    lines = [f"R = {symbols} = {values} = {plain(ohm)}"]
     lines += [seen.text for _, seen, _ in sides]
     lines += [f"{gain.text} from {name}" for name, _, gain in sides if gain.text]
     return LookingIn(ohm, "both ends", "; ".join(lines), parts, source)

@@ -23,7 +23,7 @@ from tauledger.network.bands import Bands
 
 INTERNAL = ("g_pi", "g_o", "g_mu")
 WITHOUT_SIGNAL = ("substrate", "body")
-LONE_WORDS = ("input", "common", "output")
+LONE_WORDS = ("input", "common terminal", "output")
 
 
 @dataclass(frozen=True, slots=True)
@@ -366,17 +366,10 @@ def _lone_cell(part: Part, nodes: tuple[str, ...]) -> Cell | None:
 def _with_body(cells: list[Cell]) -> list[Cell]:
     """Take a source between the same two nodes that is controlled from AC ground as the body effect of the first."""
     kept: list[Cell] = []
-    for cell in cells:
-        host = next(
-            (
-                k
-                for k, other in enumerate(kept)
-                if (other.output, other.common) == (cell.output, cell.common)
-                and cell.control == GROUND != other.control
-                and other.body is None
-            ),
-            None,
-        )
+    for cell in sorted(cells, key=lambda cell: cell.control == GROUND):
+        ends = (cell.output, cell.common)
+        hosts = [k for k, o in enumerate(kept) if (o.output, o.common) == ends and o.body is None]
+        host = hosts[0] if hosts and cell.control == GROUND else None
         if host is None:
             kept.append(cell)
         else:
@@ -433,7 +426,10 @@ def _terminals(
         if t.word not in WITHOUT_SIGNAL
     ]
     named = {terminal.owner for terminal in found}
-    card = {part.owner: part.nodes for part in whole.parts if part.kind == "transconductance"}
+    card: dict[str, tuple[str, ...]] = {}
+    for part in whole.parts:
+        if part.kind == "transconductance":
+            card.setdefault(part.owner, part.nodes)
     for cell in cells:
         if cell.owner in named:
             continue

@@ -30,8 +30,8 @@ def compact(value: float, digits: int = 3) -> str:
     return f"{sign}{text}{PREFIXES[power]}"
 
 
-def ratio(value: float, digits: int = 3) -> str:
-    """Write a number without dimension: 0.987, −0.0127, 121, −42.5k."""
+def plain(value: float, digits: int = 3) -> str:
+    """Write a number that is rather below 1 than in milli: 0.987, −0.0127, 121, −42.5k; for gains and for ohms."""
     if 1e-3 <= abs(value) < 1.0:
         return f"{value:.{digits}g}".replace("-", "−")
     return compact(value, digits)

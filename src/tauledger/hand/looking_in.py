@@ -17,7 +17,7 @@ import numpy as np
 from tauledger.circuit import GROUND
 from tauledger.hand.equivalent import Cell, EquivalentCircuit
 from tauledger.hand.estimate import LookingIn, Resistance
-from tauledger.hand.figures import compact, ratio
+from tauledger.hand.figures import compact, plain
 from tauledger.hand.rules import Outside, Rule
 from tauledger.hand.rules.bipolar import BASE, COLLECTOR, EMITTER
 from tauledger.hand.rules.field_effect import DRAIN, SOURCE
@@ -94,8 +94,8 @@ def looking_in(circuit: EquivalentCircuit, node: str, label: str) -> LookingIn:
     return _branch_form(circuit, node, label, exact, None if spent else rule_ohm) or LookingIn(
         exact,
         "solved",
-        f"R({label}) = {compact(exact)}, solved"
-        + ("" if spent else f"; looking in without the loops gives {compact(rule_ohm)}"),
+        f"R({label}) = {plain(exact)}, solved"
+        + ("" if spent else f"; looking in without the loops gives {plain(rule_ohm)}"),
         _resistances(found),
         "solved",
         rule_ohm=None if spent else rule_ohm,
@@ -115,7 +115,7 @@ def outside(circuit: EquivalentCircuit, node: str, without: frozenset[Element], 
     ohm = _total(found)
     shown = _shown(found)
     if len(walk.path) >= PRINTED_DEPTH or len(shown) > 4 or not shown:
-        return Seen(ohm, compact(ohm))
+        return Seen(ohm, plain(ohm))
     return Seen(ohm, " ‖ ".join(branch.symbol for branch in shown), len(shown))
 
 
@@ -124,11 +124,19 @@ def branches(circuit: EquivalentCircuit, node: str, without: frozenset[Element],
     walk.path.append(node)
     found: list[Branch] = []
     skipped = set(without)
-    for k in circuit.cells_at.get(node, ()):
-        if ("Q", k) not in skipped:
-            branch = _diode_through(circuit, node, k, skipped, walk) or _cell_branch(circuit, node, k, walk)
-            if branch is not None and not math.isinf(branch.ohm):
-                found.append(branch)
+    for k in _cells_near(circuit, node):
+        joint = diode_joint(circuit, k)
+        if ("Q", k) in skipped:
+            continue
+        branch: Branch | None = None
+        if joint is not None and node in (joint.node, circuit.cells[k].common):
+            if node == joint.node:
+                skipped |= joint.elements
+            branch = _diode_through(circuit, node, k, joint, walk)
+        elif k in circuit.cells_at.get(node, ()):
+            branch = _cell_branch(circuit, node, k, walk)
+        if branch is not None and not math.isinf(branch.ohm):
+            found.append(branch)
     passive: list[Branch] = []
     for k in circuit.resistors_at.get(node, ()):
         if ("R", k) in skipped:
@@ -144,6 +152,45 @@ def branches(circuit: EquivalentCircuit, node: str, without: frozenset[Element],
         passive.append(Branch(resistor.name, resistor.ohm + beyond.ohm, symbol, "", far, resistor.ohm))
     walk.path.pop()
     return [*passive, *found]
+
+
+@dataclass(frozen=True, slots=True)
+class Joint:
+    """Where a transistor's control and output meet outside its series resistances r_b and r_c, ohm."""
+
+    node: str
+    r_b: float
+    r_c: float
+    elements: frozenset[Element]
+
+
+def diode_joint(circuit: EquivalentCircuit, k: int) -> Joint | None:
+    """Give the node at which cell k is diode-connected outside its series resistances, or None."""
+    cell = circuit.cells[k]
+    base = _only_resistor(circuit, cell.control, k)
+    if base is None or cell.diode_connected:
+        return None
+    node = circuit.resistors[base].other(cell.control)
+    elements: set[Element] = {("Q", k), ("R", base)}
+    r_c = 0.0
+    if node != cell.output:
+        collector = _only_resistor(circuit, cell.output, k)
+        if collector is None or circuit.resistors[collector].other(cell.output) != node:
+            return None
+        elements.add(("R", collector))
+        r_c = circuit.resistors[collector].ohm
+    if node in (GROUND, cell.common):
+        return None
+    return Joint(node, circuit.resistors[base].ohm, r_c, frozenset(elements))
+
+
+def _cells_near(circuit: EquivalentCircuit, node: str) -> list[int]:
+    """List the cells at a node, and those whose control hangs on it behind one resistor alone."""
+    near = list(circuit.cells_at.get(node, ()))
+    for r in circuit.resistors_at.get(node, ()):
+        far = circuit.resistors[r].other(node)
+        near += [k for k in circuit.cells_at.get(far, ()) if circuit.cells[k].control == far and k not in near]
+    return near
 
 
 def loop_resistance(circuit: EquivalentCircuit, node: str, k: int) -> float:
@@ -187,7 +234,7 @@ def _one_loop(circuit: EquivalentCircuit, node: str, label: str, rule_ohm: float
     t = r0 / exact - 1.0
     head = _line(f"R0({label})", found, r0)
     raised = " (the loop raises it)" if t < 0.0 else ""
-    text = f"{head} with gm({owner}) = 0; R = R0/(1 + T) = {compact(r0)}/{_one_plus(t)} = {compact(exact)}{raised}"
+    text = f"{head} with gm({owner}) = 0; R = R0/(1 + T) = {plain(r0)}/{_one_plus(t)} = {plain(exact)}{raised}"
     return LookingIn(exact, f"one loop through {owner}", text, _resistances(found), "loop", loop_gain=t)
 
 
@@ -214,7 +261,7 @@ def _branch_form(
 def _link(circuit: EquivalentCircuit, node: str, name: str, far: str, ohm: float) -> Branch:
     rest = 1.0 - circuit.gain(node, far)
     value = ohm / rest if rest else math.inf
-    return Branch(name, value, name if rest == 1.0 else f"{name}/{ratio(rest)}")
+    return Branch(name, value, name if rest == 1.0 else f"{name}/{plain(rest)}")
 
 
 def _cell_branch(circuit: EquivalentCircuit, node: str, k: int, walk: Walk) -> Branch | None:
@@ -265,55 +312,17 @@ def _cell_branch(circuit: EquivalentCircuit, node: str, k: int, walk: Walk) -> B
     return _by_rule(COLLECTOR, cell, _into(cell, 2), {"R_E": r_e, "R_B": seen(cell.control)})
 
 
-def _diode_through(circuit: EquivalentCircuit, node: str, k: int, skipped: set[Element], walk: Walk) -> Branch | None:
-    """A transistor diode-connected outside its r_b (and r_c) is one two-terminal part; skip those at the node."""
+def _diode_through(circuit: EquivalentCircuit, node: str, k: int, joint: Joint, walk: Walk) -> Branch:
+    """Take a transistor diode-connected outside its r_b (and r_c) as one two-terminal part."""
     cell = _unmuted(circuit, k, walk)
-    top = _joint(circuit, k)
-    if top is None or node not in (top.node, cell.common) or top.node == cell.common:
-        return None
-    ohm = diode_through_resistance_ohm(cell, top.r_b, top.r_c)
-    far = cell.common if node == top.node else top.node
-    if node == top.node:
-        skipped |= top.elements
-    beyond = outside(circuit, far, top.elements, walk)
-    formula = "[(r_π + r_b)/(β + 1)] ‖ r_o"
-    detail = f"diode-connected {cell.owner} = {formula} = {compact(ohm)}"
-    return Branch(
-        f"diode-connected {cell.owner}",
-        ohm + beyond.ohm,
-        f"diode-connected {cell.owner}" if beyond.ohm == 0.0 else f"(diode-connected {cell.owner} + {beyond.symbol})",
-        detail,
-        far,
-        ohm,
-    )
-
-
-@dataclass(frozen=True, slots=True)
-class _Joint:
-    node: str
-    r_b: float
-    r_c: float
-    elements: frozenset[Element]
-
-
-def _joint(circuit: EquivalentCircuit, k: int) -> _Joint | None:
-    """Find the node at which a cell's control and output meet outside its series resistances, if they do."""
-    cell = circuit.cells[k]
-    base = _only_resistor(circuit, cell.control, k)
-    if base is None or cell.diode_connected:
-        return None
-    node = circuit.resistors[base].other(cell.control)
-    elements = {("Q", k), ("R", base)}
-    r_c = 0.0
-    if node != cell.output:
-        collector = _only_resistor(circuit, cell.output, k)
-        if collector is None or circuit.resistors[collector].other(cell.output) != node:
-            return None
-        elements.add(("R", collector))
-        r_c = circuit.resistors[collector].ohm
-    if node == GROUND:
-        return None
-    return _Joint(node, circuit.resistors[base].ohm, r_c, frozenset(elements))
+    ohm = diode_through_resistance_ohm(cell, joint.r_b, joint.r_c)
+    far = cell.common if node == joint.node else joint.node
+    beyond = outside(circuit, far, joint.elements, walk)
+    name = f"diode-connected {cell.owner}"
+    symbol = name if beyond.ohm == 0.0 else f"({name} + {beyond.symbol})"
+    given = f"r_π = {plain(cell.r_pi)}, r_b = {plain(joint.r_b)}, β = {plain(cell.beta)}"
+    detail = f"{name}: [(r_π + r_b)/(β + 1)] ‖ r_o ≈ {plain(ohm)} with {given}"
+    return Branch(name, ohm + beyond.ohm, symbol, detail, far, ohm)
 
 
 def _only_resistor(circuit: EquivalentCircuit, node: str, k: int) -> int | None:
@@ -356,13 +365,14 @@ def _by_rule(
         if symbol not in formula:
             continue
         if symbol in seen:
-            value = compact(seen[symbol].ohm)
+            value = plain(seen[symbol].ohm)
             written = seen[symbol].symbol
             shown.append(f"{symbol} = {value}" if written in (value, "0", "∞") else f"{symbol} = {written} = {value}")
         else:
-            shown.append(f"{symbol} = {compact(own.get(symbol, 0.0))}")
+            write = compact if symbol in ("gm", "g_mb") else plain
+            shown.append(f"{symbol} = {write(own.get(symbol, 0.0))}")
     given = f" with {', '.join(shown)}" if shown else ""
-    return Branch(name, ohm, name, f"{name}: {formula} {equals} {compact(ohm)}{given}", far, link_ohm)
+    return Branch(name, ohm, name, f"{name}: {formula} {equals} {plain(ohm)}{given}", far, link_ohm)
 
 
 def _ohm(seen: dict[str, Seen], *symbols: str) -> float:
@@ -385,10 +395,10 @@ def _shown(found: Sequence[Branch]) -> list[Branch]:
 def _line(head: str, found: Sequence[Branch], ohm: float) -> str:
     shown = _shown(found)
     if not shown:
-        return f"{head} = {compact(ohm)}"
+        return f"{head} = {plain(ohm)}"
     symbols = " ‖ ".join(branch.symbol for branch in shown)
-    values = " ‖ ".join(compact(branch.ohm) for branch in shown)
-    parts = [head, symbols, values] if len(shown) == 1 else [head, symbols, values, compact(ohm)]
+    values = " ‖ ".join(plain(branch.ohm) for branch in shown)
+    parts = [head, symbols, values] if len(shown) == 1 else [head, symbols, values, plain(ohm)]
     return "; ".join([" = ".join(parts), *(branch.detail for branch in shown if branch.detail)])
 
 
@@ -397,7 +407,7 @@ def _resistances(found: Sequence[Branch]) -> tuple[Resistance, ...]:
 
 
 def _one_plus(t: float) -> str:
-    return f"(1 + {ratio(t)})" if t >= 0.0 else f"(1 − {ratio(-t)})"
+    return f"(1 + {plain(t)})" if t >= 0.0 else f"(1 − {plain(-t)})"
 
 
 def _close(value: float, exact: float, tolerance: float) -> bool:

@@ -19,7 +19,7 @@ import numpy as np
 from tauledger.circuit import GROUND
 from tauledger.hand.equivalent import Capacitor, Cell, EquivalentCircuit
 from tauledger.hand.estimate import MillerTerm, WorkingSource
-from tauledger.hand.figures import compact, ratio
+from tauledger.hand.figures import compact, plain
 from tauledger.hand.looking_in import Element, Seen, Walk, outside
 from tauledger.hand.rules.rule import parallel
 
@@ -52,13 +52,16 @@ def hand_gain(circuit: EquivalentCircuit, start: str, end: str) -> HandGain:
     if start == end:
         return HandGain(1.0, "", "rule")
     exact = circuit.gain(start, end)
+    missed = ""
     for chain in _chains(circuit, start, end):
         value, text = _along(circuit, start, chain)
         if abs(value - exact) <= ACCEPTED * abs(1.0 - exact):
             return HandGain(value, text, "rule")
+        missed = missed or text
     if abs(exact) <= ACCEPTED * abs(1.0 - exact):
         return HandGain(0.0, "", "rule")
-    return HandGain(exact, f"K = {ratio(exact)}, solved", "solved")
+    by_hand = f"; by hand {missed}" if missed else ""
+    return HandGain(exact, f"K = {plain(exact)}, solved{by_hand}", "solved")
 
 
 def miller_term(circuit: EquivalentCircuit, capacitor: Capacitor, node: str) -> MillerTerm:
@@ -73,7 +76,7 @@ def miller_term(circuit: EquivalentCircuit, capacitor: Capacitor, node: str) -> 
     back = hand_gain(circuit, far, node)
     if back.value <= TEXTBOOK_BELOW and back.value < here.value:
         a = -back.value
-        text = f"1 + 1/|A| = 1 + 1/{ratio(a)} = {ratio(1.0 + 1.0 / a)}"
+        text = f"1 + 1/|A| = 1 + 1/{plain(a)} = {plain(1.0 + 1.0 / a)}"
         return MillerTerm(capacitor.part, capacitor.farad, 1.0 + 1.0 / a, complex(-1.0 / a), text, back.source)
     k = here.value
     return MillerTerm(capacitor.part, capacitor.farad, 1.0 - k, complex(k), here.text, here.source)
@@ -123,18 +126,18 @@ def _along(circuit: EquivalentCircuit, start: str, chain: tuple[_Hop, ...]) -> t
         value *= factor
         lines.append(line)
         driven.add(hop.end)
-    if value == 0.0:
+    if abs(value) < NOT_PRINTED:
         return value, ""
     if len(lines) == 1:
         return value, f"K = {lines[0]}"
-    return value, f"K = {' · '.join(f'({line})' for line in lines)} = {ratio(value)}"
+    return value, f"K = {' · '.join(f'({line})' for line in lines)} = {plain(value)}"
 
 
 def _through_resistor(circuit: EquivalentCircuit, k: int, hop: _Hop, walk: Walk) -> tuple[float, str]:
     resistor = circuit.resistors[k]
     load = outside(circuit, hop.end, frozenset({hop.element}), walk)
     share = 1.0 if math.isinf(load.ohm) else load.ohm / (load.ohm + resistor.ohm)
-    text = f"R/(R + {resistor.name}) = {compact(load.ohm)}/{compact(load.ohm + resistor.ohm)} = {ratio(share)}"
+    text = f"R/(R + {resistor.name}) = {plain(load.ohm)}/{plain(load.ohm + resistor.ohm)} = {plain(share)}"
     return share, text
 
 
@@ -179,33 +182,46 @@ def _cell_voltages(cell: Cell, driven: str, load: dict[str, Seen]) -> dict[str, 
 
 def _cell_text(cell: Cell, hop: _Hop, load: dict[str, Seen], value: float) -> str:
     """Write the gain of a cell with the textbook's formula where that is within 1 % on 1 − K."""
-    words = dict(zip((cell.control, cell.common, cell.output), cell.words, strict=True))
+    if abs(value) < NOT_PRINTED:
+        return ""
     r_c, r_e = load.get(cell.output, Seen(0.0, "0")), load.get(cell.common, Seen(0.0, "0"))
     into_r_o = _beside(r_c, cell)
-    gm, result = compact(cell.gm), ratio(value)
+    result = plain(value)
     tried: tuple[float, str] | None = None
-    if value == 0.0:
-        return ""
     if (hop.start, hop.end) == (cell.control, cell.output):
         if r_e.ohm == 0.0:
             k = -cell.gm * into_r_o.ohm
-            tried = k, f"−gm·{_bracketed(into_r_o)} = {compact(-cell.gm)}·{compact(into_r_o.ohm)} = {result}"
+            tried = k, f"−gm·{_bracketed(into_r_o)} = {compact(-cell.gm)}·{plain(into_r_o.ohm)} = {result}"
         else:
-            k = -cell.gm * r_c.ohm / (1.0 + cell.gm * r_e.ohm)
-            degenerated = f"(1 + {gm}·{compact(r_e.ohm)})"
-            tried = k, f"−gm·R_C/(1 + gm·R_E) = {compact(-cell.gm)}·{compact(r_c.ohm)}/{degenerated} ≈ {result}"
+            tried = _degenerated(cell, r_c, r_e, result)
     elif (hop.start, hop.end) == (cell.control, cell.common):
         product = cell.gm * parallel(r_e.ohm, cell.r_o)
-        text = f"gm·R_E/(1 + gm·R_E) = {ratio(product)}/{ratio(1.0 + product)} ≈ {result}"
+        text = f"gm·R_E/(1 + gm·R_E) = {plain(product)}/{plain(1.0 + product)} ≈ {result}"
         tried = product / (1.0 + product), text
     elif (hop.start, hop.end) == (cell.common, cell.output):
         k = (cell.gm + cell.body_gm) * into_r_o.ohm
-        tried = k, f"gm·{_bracketed(into_r_o)} = {compact(cell.gm + cell.body_gm)}·{compact(into_r_o.ohm)} ≈ {result}"
+        tried = k, f"gm·{_bracketed(into_r_o)} = {compact(cell.gm + cell.body_gm)}·{plain(into_r_o.ohm)} ≈ {result}"
     if tried is not None and abs(tried[0] - value) <= ACCEPTED * abs(1.0 - value):
         return tried[1]
-    seen = ", ".join(f"R({words[node]}) = {compact(s.ohm)}" for node, s in load.items() if s.ohm)
+    words = dict(zip((cell.control, cell.common, cell.output), cell.words, strict=True))
+    seen = ", ".join(f"R({words[node]}) = {plain(s.ohm)}" for node, s in load.items() if s.ohm)
     given = f" with {seen}" if seen else ""
     return f"{cell.owner} from {words[hop.start]} to {words[hop.end]} = {result}{given}"
+
+
+def _degenerated(cell: Cell, r_c: Seen, r_e: Seen, result: str) -> tuple[float, str]:
+    """−gm·(R_C ‖ R_o)/(1 + gm·R_E) with R_o = r_o·(1 + gm·R_E); R_o is left out where it carries below 0.1 %."""
+    gm = compact(cell.gm)
+    loop = 1.0 + cell.gm * r_e.ohm
+    r_o = cell.r_o * loop if loop > 0.0 else math.inf
+    load = parallel(r_c.ohm, r_o)
+    written = "R_C" if r_c.ohm < NOT_PRINTED * r_o else "(R_C ‖ R_o)"
+    given = [f"R_C = {r_c.symbol} = {plain(r_c.ohm)}" if r_c.symbol != plain(r_c.ohm) else f"R_C = {plain(r_c.ohm)}"]
+    if written != "R_C":
+        given.append(f"R_o = r_o·(1 + gm·R_E) = {plain(r_o)}")
+    numbers = f"{compact(-cell.gm)}·{plain(load)}/(1 + {gm}·{plain(r_e.ohm)})"
+    text = f"−gm·{written}/(1 + gm·R_E) = {numbers} ≈ {result} with {', '.join(given)}"
+    return (-cell.gm * load / loop if loop else math.nan), text
 
 
 def _beside(load: Seen, cell: Cell) -> Seen:

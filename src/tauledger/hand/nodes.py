@@ -15,7 +15,8 @@ LISTED_OWNERS = 3
 OUTPUT_WORDS = ("collector", "drain", "output", "anode")
 CONTROL_WORDS = ("base", "gate", "input")
 PLURAL = {"base": "bases", "gate": "gates", "emitter": "emitters", "source": "sources", "collector": "collectors"}
-PLURAL |= {"drain": "drains", "anode": "anodes", "cathode": "cathodes"}
+PLURAL |= {"drain": "drains", "anode": "anodes", "cathode": "cathodes", "input": "inputs", "output": "outputs"}
+PLURAL |= {"common terminal": "common terminals"}
 
 
 @dataclass(frozen=True, slots=True)
@@ -79,11 +80,11 @@ def groups(circuit: EquivalentCircuit) -> tuple[Group, ...]:
 def node_name(circuit: EquivalentCircuit, node: str) -> str:
     """Give the netlist's name of a hand node: the output if it is in it, else the one with most device terminals.
 
-    An inner node is called "inside Q1 (base)".
+    An inner node is called "base of Q1, inside".
     """
     terminal = _inner_nodes(circuit).get(node)
     if terminal is not None:
-        return f"inside {terminal.owner} ({terminal.word})"
+        return f"{terminal.word} of {terminal.owner}, inside"
     if node == GROUND:
         return GROUND
     members = circuit.members[node]
@@ -152,7 +153,7 @@ def _describe(circuit: EquivalentCircuit, node: str) -> tuple[str, str, str]:
     sign = _output_sign(circuit, node)
     if sign:
         phrases.append(sign)
-        words.append("output")
+        words = [*(word for word in words if word != "output"), "output"]
     owner = next(iter(by_word.values()))[0] if by_word else ""
     name = node_name(circuit, node)
     if not phrases:

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from tauledger.circuit import GROUND
 from tauledger.hand.equivalent import Cell, EquivalentCircuit
+from tauledger.hand.looking_in import diode_joint
 
 IDLE = 1e-3
 FOLLOWS = 0.05
@@ -24,7 +25,7 @@ def role_of(circuit: EquivalentCircuit, cell: Cell) -> str:
     the output or the common node, whichever the circuit's output follows more. Degenerated: the common node, entered by
     the control, moves by more than 5 % of it.
     """
-    if cell.diode_connected:
+    if _diode_node(circuit, cell) is not None:
         return "diode-connected"
     left_at = leaves_at(circuit, cell)
     if left_at is None:
@@ -35,7 +36,7 @@ def role_of(circuit: EquivalentCircuit, cell: Cell) -> str:
         return into_common
     if left_at == cell.common:
         return follower
-    if any(other.diode_connected and other.control == cell.control for other in circuit.cells):
+    if _control_node(circuit, cell) in {_diode_node(circuit, other) for other in circuit.cells}:
         return "current mirror output"
     return degenerated if abs(v_common) > FOLLOWS * abs(v_control) else shared
 
@@ -50,6 +51,21 @@ def leaves_at(circuit: EquivalentCircuit, cell: Cell) -> str | None:
     if abs(cell.gm * v * (to_output - to_common)) < IDLE * abs(circuit.response):
         return None
     return cell.common if abs(to_common) > abs(to_output) else cell.output
+
+
+def _diode_node(circuit: EquivalentCircuit, cell: Cell) -> str | None:
+    """Give the node at which a cell's control is its own output, series resistances aside."""
+    if cell.diode_connected:
+        return cell.control
+    joint = diode_joint(circuit, circuit.cells.index(cell))
+    return None if joint is None else joint.node
+
+
+def _control_node(circuit: EquivalentCircuit, cell: Cell) -> str:
+    """Give the node that drives a cell's control: the far end of the one resistor there, else the control itself."""
+    resistors = circuit.resistors_at.get(cell.control, ())
+    lonely = len(resistors) == 1 and len(circuit.cells_at.get(cell.control, ())) == 1
+    return circuit.resistors[resistors[0]].other(cell.control) if lonely else cell.control
 
 
 def _at(circuit: EquivalentCircuit, node: str) -> complex:

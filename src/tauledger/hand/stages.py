@@ -86,7 +86,7 @@ def _source_cell(circuit: EquivalentCircuit, group: Group, before: str | None) -
     leaving = [
         cell
         for cell in (circuit.cells[k] for k in at)
-        if not cell.diode_connected and leaves_at(circuit, cell) in group.nodes
+        if leaves_at(circuit, cell) in group.nodes and role_of(circuit, cell) != "diode-connected"
     ]
     near = [cell for cell in leaving if before in (cell.control, cell.common)]
     return next(iter(near or leaving), None)

@@ -51,9 +51,9 @@ def collector_ohm(cell: Cell, outside: Outside) -> float:
 
     Source: Gray, Hurst, Lewis and Meyer, 5th ed., 2009, sec. 3.3.8, with R_B kept.
     """
-    if math.isinf(cell.r_o):
-        return math.inf
     r = parallel(outside.common, cell.r_pi + outside.control)
+    if math.isinf(cell.r_o) or math.isinf(r):
+        return math.inf
     return cell.r_o + r + cell.gm * divider(cell, outside.control) * cell.r_o * r
 
 

@@ -43,14 +43,14 @@ def drain_ohm(cell: Cell, outside: Outside) -> float:
 
     Source: Gray, Hurst, Lewis and Meyer, 5th ed., 2009, sec. 3.3.9.
     """
-    if math.isinf(cell.r_o):
+    if math.isinf(cell.r_o) or math.isinf(outside.common):
         return math.inf
     return cell.r_o + outside.common + (cell.gm + cell.body_gm) * cell.r_o * outside.common
 
 
 def drain_short_ohm(cell: Cell, outside: Outside) -> float:
     """Give r_o·(1 + gm·R_S) in ohm."""
-    return cell.r_o * (1.0 + cell.gm * outside.common)
+    return math.inf if math.isinf(outside.common) else cell.r_o * (1.0 + cell.gm * outside.common)
 
 
 GATE = Rule(

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import math
+
 from tauledger.hand.equivalent import Cell
 from tauledger.hand.rules.rule import Outside, Rule, divider, inverse
 
@@ -18,6 +20,8 @@ def diode_siemens(cell: Cell) -> float:
 
 def diode_top_ohm(cell: Cell, outside: Outside) -> float:
     """Give R_S + (1 + g_mb·R_S)/g in ohm, seen from the joined control and output."""
+    if math.isinf(outside.common):
+        return math.inf
     return outside.common + (1.0 + cell.body_gm * outside.common) * inverse(diode_siemens(cell))
 
 
@@ -29,6 +33,8 @@ def diode_top_short_ohm(cell: Cell, outside: Outside) -> float:
 def diode_bottom_ohm(cell: Cell, outside: Outside) -> float:
     """Give (1 + g·R_D)/(g + g_mb) in ohm, seen from the common node."""
     g = diode_siemens(cell)
+    if math.isinf(outside.output):
+        return math.inf if g else inverse(cell.body_gm)
     return (1.0 + g * outside.output) * inverse(g + cell.body_gm)
 
 
