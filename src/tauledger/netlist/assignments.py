@@ -26,7 +26,9 @@ def parse_assignments(site: Site) -> tuple[Item, ...]:
             raise site.fault(at, "a comma cannot stand between assignments", "separate them by blanks")
         match = _NAME.match(text, at)
         if match is None:
-            raise site.fault(at, "the name of a parameter is expected here", "letters, digits and _, no digit first")
+            formula = text[at] in "+-*/^%<>=!&|?:("
+            hint = "a formula with blanks stands in braces: name={a + b}" if formula else "letters, digits and _"
+            raise site.fault(at, "the name of a parameter is expected here", hint)
         name = Word(match.group(), at)
         equals = _skip(text, match.end())
         if equals < len(text) and text[equals] == "(":

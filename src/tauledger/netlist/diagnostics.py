@@ -9,6 +9,7 @@ import unicodedata
 from collections.abc import Iterable
 from dataclasses import dataclass
 from difflib import get_close_matches
+from operator import itemgetter
 
 from tauledger.circuit import fold
 from tauledger.errors import Diagnostic, NetlistError
@@ -104,7 +105,7 @@ def gather(faults: Iterable[Diagnostic], files: tuple[SourceFile, ...]) -> Netli
     The same message at the same place in a second instance of a subcircuit is left out.
     """
     order = {visible(source.path): number for number, source in reversed(list(enumerate(files)))}
-    first: dict[tuple[int, int, int, str], Diagnostic] = {}
+    first: dict[tuple[tuple[int, int, int], str], Diagnostic] = {}
     for fault in faults:
-        first.setdefault((order[fault.file], fault.line, fault.column, fault.message), fault)
-    return NetlistError(*[first[key] for key in sorted(first)][:MOST_DIAGNOSTICS])
+        first.setdefault(((order[fault.file], fault.line, fault.column), fault.message), fault)
+    return NetlistError(*[first[key] for key in sorted(first, key=itemgetter(0))][:MOST_DIAGNOSTICS])

@@ -220,6 +220,9 @@ def _no_model(site: Site, card: Fields, family: Family, models: frozenset[str], 
     if len(places) <= least:
         message = f"a {family.words} has at least {least} nodes and a model"
         return site.fault(len(site.card.text), message, shape)
+    beyond = next((place for place in places[len(family.terminals) + 1 :] if _is_name(place, models)), None)
+    if beyond is not None:
+        return site.fault(beyond, f"a {family.words} has at most {len(family.terminals)} nodes", shape)
     last = places[min(len(places), len(family.terminals) + 1) - 1]
     # A number in the last place is the area: the name before it was meant to be the model.
     if isinstance(last, Word) and read_number(last.text) is not None and len(places) > least + 1:

@@ -132,7 +132,7 @@ def parse_formula(site: Site, text: str, at: int, inner: int) -> Formula:
 
 def _advice(text: str, where: int, found: str) -> str:
     if found[0] in "+-" or text[:where].rstrip()[-1:] in ("+", "-"):
-        return "behind an operator a sign stands only before a number: use parentheses"
+        return "behind an operator only a minus before a number stands: use parentheses"
     if found[0].isdigit() and where and text[where - 1].isalpha():
         return "digits cannot follow a suffix: write 4.7k, not 4k7"
     return "an operator is missing before it" if found[0].isalnum() or found[0] in "_(" else ""
@@ -150,7 +150,7 @@ def _check_signs(site: Site, tree: Tree, text: str, inner: int) -> None:
         before = text[: tree.at].rstrip()
         if before and before[-1] not in "(," and not isinstance(tree.operands[0], Number):
             raise site.fault(
-                inner + tree.at, "a sign behind an operator stands only before a number", "use parentheses"
+                inner + tree.at, "behind an operator only a minus before a number stands", "use parentheses"
             )
     for part in tree.operands:
         _check_signs(site, part, text, inner)
@@ -238,8 +238,7 @@ def _parser() -> Lark:
         return Number(read_formula_number(str(children[0])), at(children[0]))
 
     def signed(children: Sequence[Token]) -> Number:
-        value = read_formula_number(str(children[1]))
-        return Number(-value if children[0] == "-" else value, at(children[0]))
+        return Number(-read_formula_number(str(children[1])), at(children[0]))
 
     def name(children: Sequence[Token]) -> Name:
         return Name(str(children[0]), at(children[0]))

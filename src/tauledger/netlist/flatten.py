@@ -182,7 +182,8 @@ def _device(
         return
     where = found.places.get(fold(refusal.parameter))
     if where is not None:
-        raise Site(netlist.files, netlist.cards[found.model.card]).fault(where, refusal.reason, refusal.hint)
+        user = (f"used by {visible(name)} ({site.where})",)
+        raise Site(netlist.files, netlist.cards[found.model.card], user).fault(where, refusal.reason, refusal.hint)
     setting = next((s for s in card.settings if fold(s.name.text) == fold(refusal.parameter)), None)
     raise site.fault(setting or card.name, refusal.reason, refusal.hint)
 

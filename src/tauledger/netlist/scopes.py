@@ -39,7 +39,7 @@ class Scope:
     bindings: dict[str, Binding] = field(default_factory=dict)
     fixed: dict[str, float] = field(default_factory=dict)
     values: dict[str, float] = field(default_factory=dict)
-    pending: list[tuple[int, str]] = field(default_factory=list)
+    pending: list[tuple[int, str, Binding]] = field(default_factory=list)
     notes: list[ReadingNote] = field(default_factory=list)
 
     def inner(self) -> Scope:
@@ -131,10 +131,9 @@ def _pointed(head: str, tail: str) -> str:
 
 def _work_out(scope: Scope, name: str) -> float:
     binding = scope.bindings[name]
-    key = (id(scope), name)
+    key = (id(scope), name, binding)
     if key in scope.pending:
-        chain = [text for _, text in scope.pending[scope.pending.index(key) :]] + [name]
-        raise binding.site.fault(binding.setting, f"parameter {name} depends on itself", " → ".join(chain))
+        raise _circle(scope.pending[scope.pending.index(key) :])
     scope.pending.append(key)
     try:
         value = _bound(scope, name, binding)
@@ -142,6 +141,20 @@ def _work_out(scope: Scope, name: str) -> float:
         scope.pending.pop()
     scope.values[name] = value
     return value
+
+
+def _circle(round_: list[tuple[int, str, Binding]]) -> NetlistError:
+    """Report a circle of parameters once, wherever it was entered: at the one that stands first."""
+    start = min(range(len(round_)), key=lambda k: _standing(round_[k][2]))
+    names_in_order = [name for _, name, _ in round_[start:] + round_[:start]]
+    _, name, binding = round_[start]
+    chain = " → ".join([*names_in_order, name])
+    return binding.site.fault(binding.setting, f"parameter {name} depends on itself", chain)
+
+
+def _standing(binding: Binding) -> tuple[int, int, int]:
+    card = binding.site.card
+    return (card.file, card.pieces[0].line, binding.setting.at)
 
 
 def _bound(scope: Scope, name: str, binding: Binding) -> float:

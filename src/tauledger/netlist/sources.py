@@ -70,7 +70,7 @@ def source(site: Site, items: tuple[Item, ...], letter: str, scope: Scope) -> So
         elif word in ("r", "td") and isinstance(item, Setting) and at_start is not None:
             # Repetition and delay of a piecewise linear function do not touch its value at t = 0.
             rest = rest[1:]
-        elif dc is None and not isinstance(item, Group | Setting) and _is_number(item, scope):
+        elif len(rest) == len(flat) - 2 and not isinstance(item, Group | Setting) and _is_number(item, scope):
             dc, rest = number_of(site, item, scope), rest[1:]
         else:
             raise _unexpected(site, item, word, letter)
