@@ -88,7 +88,7 @@ def short_constants(bands: Bands) -> ShortConstants:
     if not np.all(np.isfinite(edges)) or {part.name for part in reactances(bands.lower).parts} != listed:
         return ShortConstants(rows, None, None)
     poles = pole_frequencies(bands.lower)
-    return ShortConstants(rows, float(sum(edges)), float(-np.sum(poles).real / (2.0 * np.pi)))
+    return ShortConstants(rows, float(sum(edges)), float(0.0 - np.sum(poles).real / (2.0 * np.pi)))
 
 
 def _is_short(bands: Bands, part: Part) -> bool:

@@ -18,6 +18,8 @@ SAME_GAIN = 10.0 ** (-3.0 / 20.0)
 PEAK = 1.01
 POINTS_PER_DECADE = 40
 MARGIN = 1e3
+CONSTANT_RANGE_HZ = (1.0, 10.0)
+NO_SIGNAL = 1e-14
 
 
 @dataclass(frozen=True, slots=True)
@@ -73,7 +75,8 @@ def find_midband(network: Network, *, at_hz: float | None = None) -> MidBand:
     Among plateaus within 3 dB of the highest gain the widest is taken. The reference is 0 where that plateau reaches
     DC, else the stationary point of |H| nearest its middle, so that it does not move to first order (where |H| has none
     but a peak at the plateau's end, the flattest point); without a plateau it is the maximum of |H|.
-    Raises InputError where at_hz is negative or the response is zero there, NetworkError where it is zero everywhere.
+    Raises InputError where at_hz is negative, and where no signal passes there or anywhere; NetworkError where the
+    network has no unique solution.
     """
     scan = _scan(network)
     plateaus = _plateaus(network, scan)
@@ -106,14 +109,24 @@ def frequency_range(poles: Complex, zeros: Complex) -> tuple[float, float] | Non
 
 def _scan(network: Network) -> _Scan:
     poles = pole_frequencies(network)
+    _require_signal(network, poles)
     zeros = zero_frequencies(network, poles)
-    low, high = frequency_range(poles, zeros) or (1.0, 10.0)
+    low, high = frequency_range(poles, zeros) or CONSTANT_RANGE_HZ
     frequency = frequency_grid(low, high, POINTS_PER_DECADE, np.concatenate([poles, zeros]))
     solution = solve(network, on_axis(frequency))
-    magnitude = np.abs(solution.response)
-    if not np.all(magnitude > 0.0):
-        raise NetworkError("the drive does not reach the output")
-    return _Scan(frequency, magnitude, log_slope(network, solution).real)
+    return _Scan(frequency, np.abs(solution.response), log_slope(network, solution).real)
+
+
+def _require_signal(network: Network, poles: Complex) -> None:
+    """Raise InputError where the output is nothing but rounding at all frequencies."""
+    low, high = frequency_range(poles, poles) or CONSTANT_RANGE_HZ
+    at = solve(network, on_axis(np.geomspace(low, high, 9)))
+    nodes = np.abs(at.x[:, : network.n_nodes]) if network.port.kind == "voltage" else np.abs(at.x * network.output)
+    if not np.any(np.abs(at.response) > NO_SIGNAL * np.max(nodes, axis=1, initial=0.0)):
+        raise InputError(
+            f"no signal reaches {network.port}",
+            "drive a source with an AC value, or take the output where its signal arrives",
+        )
 
 
 def _plateaus(network: Network, scan: _Scan) -> list[_Plateau]:
@@ -194,9 +207,9 @@ def _direct(network: Network) -> bool:
 def _at(network: Network, at_hz: float, plateaus: list[_Plateau]) -> MidBand:
     if not (np.isfinite(at_hz) and at_hz >= 0.0):
         raise InputError(f"mid-band cannot be at {at_hz:g} Hz", "give a frequency of 0 Hz or more, e.g. 10k")
+    if at_hz == 0.0 and not _direct(network):
+        raise InputError("mid-band cannot be at 0 Hz: nothing passes there", "give a frequency in the band, e.g. 10k")
     gain = complex(response(network, np.array([at_hz]))[0])
-    if abs(gain) == 0.0:
-        raise InputError(f"mid-band cannot be at {at_hz:g} Hz: nothing passes there", "give a frequency in the band")
     for plateau in plateaus:
         if plateau.from_hz <= at_hz <= plateau.to_hz:
             return MidBand(at_hz, plateau.from_hz, plateau.to_hz, gain)

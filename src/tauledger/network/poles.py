@@ -23,6 +23,7 @@ from tauledger.network.spectrum import pole_frequencies, zero_frequencies
 CANCEL_WITHIN = 0.02
 DEFECTIVE = 1e-6
 BESIDE = 1e-9
+GOLDEN = 0.5 * (np.sqrt(5.0) - 1.0)
 
 
 @dataclass(frozen=True, slots=True)
@@ -121,7 +122,9 @@ def _eigenvectors(network: Network, poles: Complex) -> tuple[Complex, Complex]:
     c = network.capacitance.dense(network.size)
     # just beside the pole, so that the matrix keeps an inverse when the pole is exact
     y = admittance(network, poles * (1.0 + BESIDE))
-    right = left = np.ones((len(poles), network.size), dtype=complex)
+    # a start without symmetry: C takes equal voltages to nothing
+    start = 1.0 + np.mod(np.arange(1, network.size + 1) * GOLDEN, 1.0)
+    right = left = np.broadcast_to(start.astype(complex), (len(poles), network.size))
     try:
         for _ in range(3):
             right = np.linalg.solve(y, (right @ c.T)[..., None])[..., 0]
