@@ -81,11 +81,12 @@ class Table:
 
 @dataclass(frozen=True, slots=True)
 class Prose:
-    """Words that wrap. lead: what stands before the first line; the others hang below its end."""
+    """Words that wrap. lead: what stands before the first line. hang: blanks before the others, None: lead's width."""
 
     text: str
     lead: str = ""
     style: str = ""
+    hang: int | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -156,12 +157,13 @@ def _prose(prose: Prose, *, width: int, unicode: bool) -> list[Line]:
     lead = spell(prose.lead, unicode=unicode)
     words = _BEFORE_A_UNIT.sub(_GLUE, spell(prose.text, unicode=unicode)).split(" ")
     texts: list[str] = []
+    hang = " " * (cells(lead) if prose.hang is None else prose.hang)
     current, empty = lead, True
     for word in filter(None, words):
         candidate = current + word if empty else f"{current} {word}"
         if not empty and cells(candidate) > width:
             texts.append(current)
-            candidate = " " * cells(lead) + word
+            candidate = hang + word
         current, empty = candidate, False
     texts.append(current)
     return [Line(text.replace(_GLUE, " ").rstrip(), prose.style) for text in texts]

@@ -5,7 +5,7 @@ from __future__ import annotations
 from tauledger.record import LowerBudget, PartRow, Review
 from tauledger.report.layout import Block, Prose, Row, Section, Table
 from tauledger.report.steps import methods, steps_in_line
-from tauledger.report.wording import SOLVED, move, nominal, number, part_title, part_unit, share
+from tauledger.report.wording import SOLVED, fraction, move, nominal, number, part_title, part_unit
 
 _ROWS = 6
 
@@ -13,7 +13,8 @@ _ROWS = 6
 def lower_edge(review: Review, *, verbose: bool = False) -> Section:
     """Give R, edge, zero, share and what 10 % less gives, for every short capacitor in the path."""
     short = [part for part in review.parts if part.klass == "short" and part.kind in ("capacitance", "inductance")]
-    rows = sorted((part for part in short if part.in_path), key=lambda part: -(part.edge_hz or 0.0))
+    with_edge = [part for part in short if part.in_path and part.edge_hz is not None]
+    rows = sorted(with_edge, key=lambda part: -(part.edge_hz or 0.0))
     blocks: list[Block] = []
     if rows and review.f_low is not None:
         shown = rows if verbose else rows[:_ROWS]
@@ -22,17 +23,20 @@ def lower_edge(review: Review, *, verbose: bool = False) -> Section:
         blocks.append(Table("lrrrrrr", head, table))
         if len(rows) > len(shown):
             blocks.append(Prose(f"Not shown: {len(rows) - len(shown)} with lower edges.", lead="  "))
-    blocks.extend(steps_in_line(review, "f_low"))
-    remarks = [_sums(review.budget.lower)] if review.budget.lower and rows else []
+    remarks = [steps_in_line(review, "f_low")] if not verbose else []
+    remarks += [_sums(review.budget.lower)] if review.budget.lower and rows and verbose else []
     remarks.append(methods(review, "f_low"))
     aside = [part_title(part.name, part.owner) for part in short if not part.in_path]
     if aside:
-        remarks.append(f"{', '.join(aside)} short, not in the signal path")
+        remarks.append(f"{', '.join(aside)} not in the signal path")
     for word, says in (("gain", "sets the mid-band gain"), ("tuned", "resonates, neither short nor open")):
         named = [part_title(part.name, part.owner) for part in review.parts if part.klass == word]
         if named:
             remarks.append(f"{', '.join(named)} {says}")
-    blocks.append(Prose("; ".join(filter(None, remarks)), lead="  "))
+    if any(part.resistance_hand_ohm is None for part in rows):
+        remarks.append(f"{SOLVED} exact: no hand rule fits")
+    if any(remarks):
+        blocks.append(Prose("; ".join(filter(None, remarks)), lead="  "))
     return Section(tuple(blocks), major=True)
 
 
@@ -50,7 +54,7 @@ def _row(part: PartRow, f_low: float | None) -> Row:
             resistance,
             number(part.edge_hz, "Hz"),
             zero,
-            share(part.share.f_low),
+            fraction(part.share.f_low),
             number(less, "Hz") + change,
         )
     )
@@ -61,5 +65,5 @@ def _sums(budget: LowerBudget) -> str:
         return ""
     if budget.pole_sum_hz is None or number(budget.sum_hz, "Hz") == number(budget.pole_sum_hz, "Hz"):
         check = "" if budget.pole_sum_hz is None else " = -Σ p/2π"
-        return f"sum of edges {number(budget.sum_hz, 'Hz')}{check}"
-    return f"sum of edges {number(budget.sum_hz, 'Hz')}, -Σ p/2π {number(budget.pole_sum_hz, 'Hz')}"
+        return f"sum over all shorts {number(budget.sum_hz, 'Hz')}{check}"
+    return f"sum over all shorts {number(budget.sum_hz, 'Hz')}, -Σ p/2π {number(budget.pole_sum_hz, 'Hz')}"

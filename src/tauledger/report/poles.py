@@ -10,8 +10,9 @@ from tauledger.report.layout import HEADING, Block, Prose, Section
 from tauledger.report.wording import move, number, owners_text, part_titles
 
 _POLES = 6
-_NEAR, _FAR = 30.0, 50.0
-_EFFECT_SHOWN = 0.005
+_NEAR, _FAR = 5.0, 50.0
+_EFFECT_SHOWN = 0.02
+_MAKES_THE_EDGE = 0.5
 
 
 def poles_and_zeros(review: Review, *, verbose: bool = False) -> Section:
@@ -21,8 +22,8 @@ def poles_and_zeros(review: Review, *, verbose: bool = False) -> Section:
     zeros = _shown_zeros(review, verbose=verbose)
     if not poles and not zeros:
         return Section(())
-    blocks: list[Block] = [Prose("POLES AND ZEROS", style=HEADING)]
-    places = [_place(pole.real_hz, pole.imag_hz, pole.f0_hz, pole.q) for pole in poles]
+    blocks: list[Block] = [Prose("POLES AND ZEROS, and what sets them", style=HEADING)]
+    places = [number(_size(pole), "Hz") for pole in poles]
     size = max(map(len, places), default=0)
     for pole, place in zip(poles, places, strict=True):
         kind = "pair" if pole.imag_hz else "pole"
@@ -34,7 +35,7 @@ def poles_and_zeros(review: Review, *, verbose: bool = False) -> Section:
 
 
 def _shown_poles(review: Review, *, verbose: bool) -> list[PoleFacts]:
-    """Choose the poles within a factor of 30 of a band edge, the two nearest on either side within 50."""
+    """Choose the poles within a factor of 5 of a band edge, and two on either side of mid-band within 50."""
     ordered = sorted(review.poles, key=_size)
     if verbose:
         return ordered
@@ -76,37 +77,39 @@ def _band(review: Review) -> tuple[float, float]:
     return low, high
 
 
-def _place(real: float, imag: float, f0: float | None, q: float | None, *, zero: bool = False) -> str:
-    side = " (right half-plane)" if real > 0.0 else ""
-    if imag == 0.0:
-        return number(abs(real), "Hz") + side
-    f0 = math.hypot(real, imag) if f0 is None else f0
-    q = f0 / (2.0 * abs(real)) if q is None and real != 0.0 else q
-    quality = "no damping" if q is None else f"Q {q:.3g}"
-    return f"{'pair ' if zero else ''}{number(f0, 'Hz')}, {quality}{side}"
+def _zero(zero: ZeroFacts) -> str:
+    at = number(_size(zero), "Hz") + (" (right half-plane)" if zero.real_hz > 0.0 else "")
+    return f"pair {at}, {_quality(zero)}" if zero.imag_hz else at
+
+
+def _quality(root: PoleFacts | ZeroFacts) -> str:
+    return f"Q {_size(root) / (2.0 * abs(root.real_hz)):.3g}" if root.real_hz else "undamped"
 
 
 def _zeros_text(zeros: Sequence[ZeroFacts]) -> str:
     at_dc = sum(_size(zero) == 0.0 for zero in zeros)
     told = [f"{at_dc} at DC"] if at_dc else []
-    told += [_place(zero.real_hz, zero.imag_hz, None, None, zero=True) for zero in zeros if _size(zero) > 0.0]
+    told += [_zero(zero) for zero in zeros if _size(zero) > 0.0]
     return f"{'zeros' if len(zeros) > 1 else 'zero'} {', '.join(told)}" if told else ""
 
 
 def _about(pole: PoleFacts, review: Review, titles: Mapping[str, str]) -> str:
     told = []
+    if pole.imag_hz:
+        told.append(_quality(pole))
     if pole.real_hz > 0.0:
-        told.append("unstable")
+        told.append("right half-plane: unstable")
     if pole.hand_hz is not None:
         formula = f" ({pole.hand_formula})" if pole.hand_formula else ""
-        told.append(f"by hand {number(pole.hand_hz, 'Hz')}{formula}")
+        told.append(f"hand {number(pole.hand_hz, 'Hz')}{formula}")
     if pole.effect is not None and abs(pole.effect) >= _EFFECT_SHOWN:
         low, high = _band(review)
         edge = "f_L" if review.f_low and _size(pole) ** 2 < low * high else "f_H"
-        told.append(f"without it {edge} {move(pole.effect)}")
+        makes = abs(pole.effect) > _MAKES_THE_EDGE
+        told.append(f"makes {edge}" if makes else f"without it {edge} {move(pole.effect)}")
     owners = owners_text(pole.owners, titles)
     if owners:
-        told.append(f"set by {owners}")
+        told.append(owners)
     if pole.cancelled:
         told.append("cancelled by a zero")
     return "; ".join(told)
@@ -120,4 +123,4 @@ def _hidden(review: Review, poles: int, zeros: int) -> str:
         for many, word in ((more_poles, "pole"), (more_zeros, "zero"))
         if many
     ]
-    return f"{' and '.join(told)} that cancel or lie far off not shown" if told else ""
+    return f"{' and '.join(told)} cancel or lie far off" if told else ""

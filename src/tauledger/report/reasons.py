@@ -6,6 +6,8 @@ from tauledger.record import CauseFacts, Review
 from tauledger.report.layout import CAUTION, HEADING, WARNING, Block, Prose, Section
 from tauledger.report.wording import AGREEMENT_WARNS, EDGE, move, network_rejected, number, retitled, withheld
 
+_CAUSES = 3
+
 
 def warning(review: Review) -> Section:
     """Warn on the first line where the rebuilt network and the sweep disagree; empty where they agree."""
@@ -21,15 +23,17 @@ def warning(review: Review) -> Section:
     return Section((Prose(f"{differ} (should be below 1e-6).", lead="WARNING: ", style=WARNING),))
 
 
-def causes(review: Review) -> Section:
+def causes(review: Review, *, verbose: bool = False) -> Section:
     """List the causes, largest first, with their effect and what to do instead."""
     if withheld(review):
         return Section((Prose(withheld(review), style=CAUTION),))
-    blocks: list[Block] = [Prose("WHY PAPER AND SIMULATION DIFFER", style=HEADING)]
-    leads = [f"  {EDGE.get(cause.quantity, cause.quantity)} {move(cause.effect)}" for cause in review.causes]
+    shown = review.causes if verbose else review.causes[:_CAUSES]
+    largest = f", {len(shown)} largest of {len(review.causes)} causes" if len(shown) < len(review.causes) else ""
+    blocks: list[Block] = [Prose(f"WHY PAPER AND SIMULATION DIFFER{largest}", style=HEADING)]
+    leads = [_effect(cause) for cause in shown]
     size = max(map(len, leads), default=0)
-    for cause, lead in zip(review.causes, leads, strict=True):
-        blocks.append(Prose(retitled(_cause(cause), review.parts), lead=f"{lead:<{size}}  "))
+    for cause, lead in zip(shown, leads, strict=True):
+        blocks.append(Prose(retitled(_cause(cause), review.parts), lead=f"  {lead:<{size}}  ", hang=4))
     if not review.causes:
         blocks.append(Prose("nothing of note above 2 %", lead="  "))
     return Section(tuple(blocks), major=True)
@@ -50,12 +54,16 @@ def closing(review: Review) -> Section:
         blocks.append(Prose("No simulation: all numbers come from the network as given."))
     blocks.append(Prose("This is an estimate; it does not replace measuring the board."))
     blocks.extend(Prose(caution, lead="CAUTION: ", style=CAUTION) for caution in review.cautions)
-    return Section(tuple(blocks), major=True)
+    return Section(tuple(blocks))
+
+
+def _effect(cause: CauseFacts) -> str:
+    return f"{EDGE.get(cause.quantity, cause.quantity)} {move(cause.effect)}"
 
 
 def _cause(cause: CauseFacts) -> str:
     instead = f" {_sentence(cause.instead)}" if cause.instead else ""
-    return _sentence(_placed(cause.where, cause.says)) + instead
+    return _sentence(cause.says) + instead
 
 
 def _placed(where: str, says: str) -> str:

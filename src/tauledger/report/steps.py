@@ -10,14 +10,23 @@ from tauledger.report.layout import HEADING, Block, Prose, Section
 from tauledger.report.wording import EDGE, move, number, retitled
 
 _STEP_SHOWN = 0.005
-_REST_SHOWN = 0.0005
-_NOT_BY_HAND = ("all poles", "exact")
+_IN_SHORT = {
+    "lowest": "the highest alone",
+    "all-nodes": "the others",
+    "exact-constants": "exact resistances",
+    "two-coefficients": "each loads the others",
+    "all-poles": "further poles",
+    "zeros": "zeros",
+    "full": "the whole network",
+}
+_CLASSICAL = "sum of time constants"
 
 
 @dataclass(frozen=True, slots=True)
 class _Told:
-    """One step as it is printed: frequency, move in per cent, reason."""
+    """One step as it is printed: its id, frequency, move in per cent, reason."""
 
+    step: str
     hertz: str
     change: str
     why: str
@@ -30,35 +39,37 @@ def steps(review: Review, edge: str) -> Section:
     if told:
         blocks.append(Prose(f"FROM PAPER TO SIMULATION, {EDGE[edge]}", style=HEADING))
         left, middle = max(len(step.hertz) for step in told), max(len(step.change) for step in told)
-        blocks.extend(
-            Prose(retitled(step.why, review.parts), lead=f"  {step.hertz:>{left}}  {step.change:>{middle}}  ")
-            for step in told
-        )
-    beside = methods(review, edge)
-    if beside:
-        blocks.append(Prose(beside, lead="  beside it: "))
+        for step in told:
+            change = f"{step.change:>{middle}}  " if step.change else ""
+            why = f"{step.why}; {methods(review, edge)}" if step is told[-1] else step.why
+            blocks.append(Prose(retitled(why, review.parts), lead=f"  {step.hertz:>{left}}  {change}"))
     return Section(tuple(blocks))
 
 
-def steps_in_line(review: Review, edge: str) -> list[Block]:
-    """Give the same way as running text."""
+def steps_in_line(review: Review, edge: str) -> str:
+    """Give the same way as running text, each reason in a few words."""
     told = _steps(review, edge)
     if not told:
-        return []
-    text = "; ".join(f"{step.hertz}{f' ({step.change})' if step.change else ''} {step.why}" for step in told)
-    return [Prose(retitled(text, review.parts), lead="  ")]
+        return ""
+    between = "".join(f", {step.change} {_IN_SHORT.get(step.step, step.step)}" for step in told[1:-1])
+    return f"{told[0].hertz} {_IN_SHORT['lowest']}{between}"
 
 
 def methods(review: Review, edge: str) -> str:
-    """Give the error of every classical method whose number no step has shown."""
-    shown = {step.hz for step in review.steps if step.edge == edge}
-    return ", ".join(
-        f"{estimate.method} {move(estimate.difference)}{' (recommended)' if estimate.recommended else ''}"
-        for estimate in review.estimates
-        if estimate.edge == edge
-        and estimate.difference is not None
-        and estimate.method not in _NOT_BY_HAND
-        and (estimate.recommended or estimate.hz not in shown)
+    """Give the sum of time constants and the recommended method with their error; JSON has all methods."""
+    told = sorted(
+        (
+            estimate
+            for estimate in review.estimates
+            if estimate.edge == edge
+            and estimate.difference is not None
+            and (estimate.recommended or estimate.method == _CLASSICAL)
+        ),
+        key=lambda estimate: estimate.recommended,
+    )
+    return "; ".join(
+        f"{'recommended: ' if estimate.recommended else ''}{estimate.method} {move(estimate.difference)}"
+        for estimate in told
     )
 
 
@@ -72,15 +83,15 @@ def _steps(review: Review, edge: str) -> list[_Told]:
     rest = 1.0
     for step in way:
         if not told:
-            told.append(_Told(number(step.hz, "Hz"), "", step.why))
+            told.append(_Told(step.step, number(step.hz, "Hz"), "", step.why))
         elif step.factor is not None and abs(step.factor - 1.0) > _STEP_SHOWN:
-            told.append(_Told(number(step.hz, "Hz"), move(step.factor - 1.0), step.why))
+            told.append(_Told(step.step, number(step.hz, "Hz"), move(step.factor - 1.0), step.why))
         else:
             rest *= step.factor or 1.0
     last = way[-1].hz or math.nan
     end = last if facts.simulated_hz is None else facts.simulated_hz
     what = "exact" if facts.simulated_hz is None else "simulated"
     rest *= end / last
-    why = f"{what}; the steps not shown make {move(rest - 1.0)}" if abs(rest - 1.0) > _REST_SHOWN else what
-    told.append(_Told(number(end, "Hz"), "", why))
+    why = f"{move(rest - 1.0)} smaller steps, {what}" if abs(rest - 1.0) > _STEP_SHOWN else what
+    told.append(_Told(what, number(end, "Hz"), "", why))
     return told

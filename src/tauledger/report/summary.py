@@ -10,6 +10,7 @@ from tauledger.report.wording import NO_NUMBER, move, nominal, number, part_unit
 
 _DECIBEL = {"V/V": "dB", "A/A": "dB", "ohm": "dBΩ", "Ω": "dBΩ", "S": "dBS"}
 _FIGURES_A_LINE = 9
+_STAGES_WORTH_TELLING = 3
 
 
 def headline(review: Review) -> Section:
@@ -46,8 +47,8 @@ def band(review: Review) -> Section:
     return Section(tuple(blocks))
 
 
-def operating_points(review: Review) -> Section:
-    """Give every device's operating point, devices with the same figures in one table."""
+def operating_points(review: Review, *, verbose: bool = False) -> Section:
+    """Give every device's operating point, devices with the same figures in one table, and the stages between them."""
     blocks: list[Block] = []
     groups: dict[tuple[str, ...], list[DeviceFacts]] = {}
     for device in review.devices:
@@ -61,7 +62,21 @@ def operating_points(review: Review) -> Section:
                 for device in devices
             )
             blocks.append(Table("l" + "r" * (len(head) - 1), head, rows))
+    if review.stages and (len(review.stages) >= _STAGES_WORTH_TELLING or verbose):
+        blocks.append(Prose(_stages(review), lead="Stages  "))
     return Section(tuple(blocks))
+
+
+def _stages(review: Review) -> str:
+    """Give the gain from each node that all signal crosses to the next; by hand too where that is not the same."""
+    told = []
+    for stage in review.stages:
+        exact, hand = stage.gain_exact, stage.gain_hand
+        gain = NO_NUMBER if exact is None else number(exact, "")
+        if exact is not None and hand is not None and abs(hand - exact) > 0.01 * abs(exact):
+            gain += f" (hand {number(hand, '')})"
+        told.append(f"{stage.node} {gain}")
+    return " → ".join(told)
 
 
 def _drive(drive: DriveFacts, *, alone: bool) -> str:
@@ -91,7 +106,7 @@ def _output(output: OutputFacts) -> str:
 def _midband(midband: MidbandFacts) -> str:
     gain = complex(midband.gain_real, midband.gain_imag)
     decibel = f"{midband.gain_db:.2f} {_DECIBEL.get(midband.unit, 'dB')}"
-    if abs(gain.imag) <= 1e-3 * abs(gain.real):
+    if abs(gain.imag) <= 1e-2 * abs(gain.real):
         size = number(gain.real, midband.unit)
     else:
         size = f"{number(abs(gain), midband.unit)} at {math.degrees(math.atan2(gain.imag, gain.real)):.3g}°"

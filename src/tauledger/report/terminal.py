@@ -10,7 +10,7 @@ from collections.abc import Sequence
 
 from tauledger.record import Review
 from tauledger.report import lower, poles, reasons, steps, summary, upper
-from tauledger.report.layout import CAUTION, HEADING, STRONG, WARNING, Line, lay_out
+from tauledger.report.layout import CAUTION, HEADING, STRONG, WARNING, Line, Section, lay_out
 
 _PAGE = 60
 _STYLES = {HEADING: "bold cyan", STRONG: "bold", WARNING: "bold red", CAUTION: "yellow", "": ""}
@@ -26,12 +26,13 @@ def render(review: Review, *, color: bool, unicode: bool, width: int = 80, verbo
         reasons.warning(review),
         summary.headline(review),
         summary.band(review),
-        summary.operating_points(review),
-        reasons.causes(review),
+        summary.operating_points(review, verbose=verbose),
+        reasons.causes(review, verbose=verbose),
         upper.upper_budget(review, verbose=verbose),
         steps.steps(review, "f_high"),
         upper.upper_shares(review, verbose=verbose),
         lower.lower_edge(review, verbose=verbose),
+        steps.steps(review, "f_low") if verbose else Section(()),
         poles.poles_and_zeros(review, verbose=verbose),
         reasons.closing(review),
     )

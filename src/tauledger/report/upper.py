@@ -41,13 +41,13 @@ def upper_budget(review: Review, *, verbose: bool = False) -> Section:
         rows.append(_node_row(node, f_high))
         if node.working:
             rows.extend(_term_rows(node, node.working, titles, least=0.0 if verbose else _WORTH_A_ROW * _whole(review)))
-    head = ("UPPER EDGE f_H, by node", "R", "C", "R·C hand", "exact", "+1 pF")
+    title = f"UPPER EDGE f_H, {len(shown)} of {len(review.nodes)} nodes" if hidden else "UPPER EDGE f_H, by node"
+    head = (title, "R", "C", "R·C hand", "exact", "+1 pF")
     blocks: list[Block] = [Table("lrrrrr", head, tuple(rows))]
     if any(node.working and node.working.source == "solved" for node in shown):
         blocks.append(Prose("solved exactly: no hand rule fits this node", lead=f"  {SOLVED} "))
     if review.budget.upper:
-        more = f"; {_count(hidden, 'node')} not shown" if hidden else ""
-        blocks.append(Prose(_sums(review.budget.upper) + more, lead="  sums  "))
+        blocks.append(Prose(_sums(review.budget.upper), lead="  "))
     if verbose:
         blocks.extend(_workings(shown, review.parts))
     return Section(tuple(blocks), major=True)
@@ -66,7 +66,16 @@ def upper_shares(review: Review, *, verbose: bool = False) -> Section:
     rows = [_share_row(part, value, titles, review.f_high.exact_hz) for part, value in shown]
     rest = ordered[len(shown) :]
     if rest:
-        rows.append(Row((f"{_count(len(rest), 'other')} together", "", share(sum(value for _, value in rest)), "")))
+        rows.append(
+            Row(
+                (
+                    f"{_count(len(rest), 'other')} together",
+                    "",
+                    share(sum(value for _, value in rest)),
+                    "",
+                )
+            )
+        )
     head = ("WHOSE CAPACITANCE SETS f_H", "value", "share", "10 % less, recomputed: f_H")
     return Section((Table("lrrr", head, tuple(rows)),))
 
@@ -107,9 +116,9 @@ def _term_rows(node: NodeRow, working: Working, titles: Mapping[str, str], *, le
     rows = [_term_row(term, titles) for term in shown]
     whole = node.capacitance_f or 0.0
     rest = whole - sum(term.farad * term.factor for term in shown)
-    if abs(rest) >= _MATTERS * abs(whole):
+    if abs(resistance * rest) >= max(least, _MATTERS * abs(resistance * whole)):
         many = len(ordered) - len(shown)
-        what = f"{_count(many, 'smaller one')}" if many else "at its inner nodes"
+        what = f"{_count(many, 'smaller one')}" if many else "not all of them face R"
         rows.append(Row((f"  {what}", "", number(rest, "F"), "", "", "")))
     return rows
 
@@ -125,13 +134,9 @@ def _times(term: CapacitanceTerm) -> str:
 
 
 def _sums(budget: UpperBudget) -> str:
-    path = ""
-    if budget.path_sum_s is not None:
-        edge = 1.0 / (6.283185307179586 * budget.path_sum_s) if budget.path_sum_s > 0.0 else None
-        path = f"R·C {number(budget.path_sum_s, 's')}, 1/(2π·Σ) = {number(edge, 'Hz')}; "
+    path = "" if budget.path_sum_s is None else f"Σ R·C {number(budget.path_sum_s, 's')}; "
     weighted = _pair("weighted", budget.weighted_sum_s, "group delay", budget.group_delay_s)
-    every = _pair("all open parts", budget.sum_s, "-Σ 1/p", budget.inverse_pole_sum_s)
-    return f"{path}{weighted}; {every}"
+    return f"{path}{weighted}; {_pair('all parts', budget.sum_s, '-Σ 1/p', budget.inverse_pole_sum_s)}"
 
 
 def _pair(name: str, value: float, check: str, other: float) -> str:
@@ -149,15 +154,16 @@ def _share_row(part: PartRow, value: float, titles: Mapping[str, str], f_high: f
 
 
 def _workings(nodes: list[NodeRow], parts: tuple[PartRow, ...]) -> list[Block]:
-    blocks: list[Block] = [Prose("Working, node by node:", lead="  ")]
+    blocks: list[Block] = [Prose("Working, node by node", lead="  ")]
     for node in nodes:
         if node.working is None:
             continue
+        loop = "" if node.working.loop_gain is None else f", loop gain T = {node.working.loop_gain:.4g}"
         exact = number(node.resistance_exact_ohm, "Ω")
-        loop = "" if node.working.loop_gain is None else f" Loop gain T = {node.working.loop_gain:.4g}."
-        share_text = "" if node.share.f_high is None else f" Share of f_H {fraction(node.share.f_high)}."
-        text = f"{node.working.text} ({node.working.rule}; {node.working.source}; exact {exact}).{loop}{share_text}"
-        blocks.append(Prose(retitled(text, parts), lead="    "))
+        facts = f"{node.title}: {node.working.rule} ({node.working.source}{loop}), exact {exact}"
+        blocks.append(Prose(f"{facts}, share of f_H {fraction(node.share.f_high)}", lead="  "))
+        lines = retitled(node.working.text, parts).split("; ")
+        blocks.extend(Prose(line, lead="    ", hang=6) for line in lines)
     return blocks
 
 

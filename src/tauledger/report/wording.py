@@ -18,6 +18,7 @@ EDGE = {"f_high": "f_H", "f_low": "f_L"}
 
 SOLVED = "†"
 NO_NUMBER = "–"
+_NOTHING = 5e-5
 
 
 def number(value: float | None, unit: str, digits: int = 4) -> str:
@@ -41,7 +42,9 @@ def part_unit(kind: str) -> str:
 
 def move(fraction: float | None, digits: int = 2) -> str:
     """Write a change as signed per cent, a dash where there is none."""
-    return NO_NUMBER if fraction is None or not math.isfinite(fraction) else percent(fraction, digits)
+    if fraction is None or not math.isfinite(fraction):
+        return NO_NUMBER
+    return "0.00 %" if abs(fraction) < _NOTHING else percent(fraction, digits)
 
 
 def fraction(value: float | None) -> str:
@@ -50,8 +53,8 @@ def fraction(value: float | None) -> str:
 
 
 def share(value: float | None) -> str:
-    """Word a share of a band edge: what lowers f as "64 %", what raises it as "speeds up, 6.0 %"."""
-    if value is not None and value < -5e-5:
+    """Word a share of f_H: capacitance that lowers it as "64 %", that raises it as "speeds up, 6.0 %"."""
+    if value is not None and value <= -_NOTHING:
         return f"speeds up, {fraction(-value)}"
     return fraction(value)
 
