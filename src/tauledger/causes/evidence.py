@@ -10,6 +10,7 @@ from tauledger.devices.family import Device
 from tauledger.devices.parts import Part
 from tauledger.hand.combine import Combined
 from tauledger.hand.estimate import Edge, LowerRow, SignalNode, StepEstimate
+from tauledger.hand.halves import counted
 from tauledger.network.bands import Bands
 from tauledger.network.solve import Complex
 from tauledger.quantity import engineering
@@ -67,10 +68,9 @@ def interaction_step(edge: EdgeEvidence) -> str:
     return "two-coefficients" if "two-coefficients" in named else "all-poles"
 
 
-def counted(nodes: tuple[SignalNode, ...]) -> list[SignalNode]:
-    """Give the signal nodes that count with a positive time constant, the lowest pole by hand first."""
-    rows = [node for node in nodes if node.in_path and node.time_constant_s > 0]
-    return sorted(rows, key=lambda row: -row.time_constant_s)
+def rows_that_count(nodes: tuple[SignalNode, ...]) -> list[SignalNode]:
+    """Give the signal nodes that count with a positive time constant (of mirror images one), the longest first."""
+    return [row for row in counted(nodes).rows if row.time_constant_s > 0]
 
 
 def outward(edge: EdgeEvidence) -> list[complex]:

@@ -7,7 +7,16 @@ from dataclasses import dataclass
 import numpy as np
 
 from tauledger.causes.cause import Cause
-from tauledger.causes.evidence import Evidence, counted, hertz, in_hertz, in_words, interaction_step, move, outward
+from tauledger.causes.evidence import (
+    Evidence,
+    hertz,
+    in_hertz,
+    in_words,
+    interaction_step,
+    move,
+    outward,
+    rows_that_count,
+)
 from tauledger.circuit import GROUND
 from tauledger.hand.estimate import InnerLine, MillerTerm, SignalNode
 from tauledger.network.assemble import Network
@@ -34,7 +43,7 @@ def gain_falls_first(evidence: Evidence) -> Cause | None:
     effect = move(evidence.upper, interaction_step(evidence.upper), "lowest")
     if effect is None or len(poles) < 2:
         return None
-    fallen = [found for row in counted(evidence.nodes) for found in _fallen(evidence, row)]
+    fallen = [found for row in rows_that_count(evidence.nodes) for found in _fallen(evidence, row)]
     fallen = [found for found in fallen if found.hand_hz < 0.5 * hertz(poles[1])]
     if not fallen:
         return None

@@ -32,7 +32,7 @@ def interaction_below(evidence: Evidence) -> Cause | None:
 def _interaction(edge: EdgeEvidence) -> Cause | None:
     effect = move(edge, "two-coefficients", "exact-constants")
     poles, combined = outward(edge), edge.combined
-    if effect is None or combined is None or combined.sigma is None or len(poles) < 2:
+    if effect is None or combined is None or combined.sigma is None or combined.hidden or len(poles) < 2:
         return None
     first, second = in_hertz(hertz(poles[0])), in_hertz(hertz(poles[1]))
     splits = combined.sigma < SPLITTING

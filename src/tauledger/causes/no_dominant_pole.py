@@ -9,6 +9,7 @@ from tauledger.record import NamedNumber
 # b1²/b2 = r + 2 + 1/r of two real poles of ratio r; 10 apart the sum of time constants is 8 % off (closed form).
 DOMINANT = 10.0 + 2.0 + 0.1
 ZERO_FAR = 5.0
+THIRD_COUNTS = 30.0
 
 
 def no_dominant_pole_above(evidence: Evidence) -> Cause | None:
@@ -32,6 +33,11 @@ def _no_dominant_pole(edge: EdgeEvidence) -> Cause | None:
     effect = combined.sum_of_constants / edge.hz - 1.0
     first, second = hertz(poles[0]), hertz(poles[1])
     kind = "open-circuit" if edge.edge == "f_high" else "short-circuit"
+    third = 1.0 if len(poles) < 3 else _ratio(first, hertz(poles[2]))
+    if len(poles) > 2 and third < THIRD_COUNTS:
+        apart = f"{in_hertz(first)}, {in_hertz(second)} and {in_hertz(hertz(poles[2]))} add up"
+    else:
+        apart = f"{in_hertz(first)} and {in_hertz(second)} are {_ratio(first, second):.2g} to 1"
     off = f"{abs(100 * effect):.2g} % {'low' if effect < 0 else 'high'}"
     instead = "solve the quadratic"
     if combined.two_coefficients is not None:
@@ -41,8 +47,7 @@ def _no_dominant_pole(edge: EdgeEvidence) -> Cause | None:
         quantity=edge.quantity,
         effect=effect,
         where=f"poles at {in_hertz(first)} and {in_hertz(second)}",
-        says=f"no pole dominates: {in_hertz(first)} and {in_hertz(second)} are {_ratio(first, second):.2g} to 1, so "
-        f"the {kind} sum, {in_hertz(combined.sum_of_constants)}, comes out {off}",
+        says=f"no pole dominates: {apart}, so the {kind} sum, {in_hertz(combined.sum_of_constants)}, comes out {off}",
         instead=instead,
         numbers=(
             NamedNumber("first pole", first, "Hz"),

@@ -5,14 +5,14 @@ from __future__ import annotations
 import math
 
 from tauledger.causes.cause import Cause
-from tauledger.causes.evidence import Evidence, counted, in_hertz, in_seconds, move
+from tauledger.causes.evidence import Evidence, in_hertz, in_seconds, move, rows_that_count
 from tauledger.hand.estimate import SignalNode
 from tauledger.record import NamedNumber
 
 
 def output_left_out(evidence: Evidence) -> Cause | None:
     """The largest time constant beside the lowest node is the output's. Effect: all nodes ÷ lowest node alone."""
-    rows = counted(evidence.nodes)
+    rows = rows_that_count(evidence.nodes)
     if len(rows) < 2 or not _is_output(rows[1], evidence):
         return None
     return _left_out(evidence, rows, "output-left-out", f"the output node, {rows[1].title}")
@@ -20,7 +20,7 @@ def output_left_out(evidence: Evidence) -> Cause | None:
 
 def other_node_left_out(evidence: Evidence) -> Cause | None:
     """The largest time constant beside the lowest node is at a node inside. Effect: all nodes ÷ lowest node alone."""
-    rows = counted(evidence.nodes)
+    rows = rows_that_count(evidence.nodes)
     if len(rows) < 2 or _is_output(rows[1], evidence):
         return None
     return _left_out(evidence, rows, "other-node-left-out", rows[1].title)

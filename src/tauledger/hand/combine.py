@@ -15,6 +15,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from tauledger.hand.estimate import LowerRow, SignalNode
+from tauledger.hand.halves import counted
 from tauledger.network.poles import cancelled_pairs
 
 Complex = NDArray[np.complex128]
@@ -63,7 +64,8 @@ class Combined:
     sum_of_constants: 1/(2π·Στ), for a lower edge Σf_k. root_sum_of_squares: 1/(2π·√(Σ1/p² − 2Σ1/z²)), for a lower
     edge √(Σp² − 2Σz²)/2π. sigma: b2 / Σ_{i<j} τ_i·τ_j, None below two time constants. coefficients: b1, b2 of the
     visible poles; for a lower edge a1, a2 of s² + a1·s + a2. far_gain: |H| far beyond the edge relative to mid-band.
-    stable: no pole in the right half plane.
+    stable: no pole in the right half plane. complex_pair: the dominant poles are complex. seen: b1 of the visible poles
+    over the sum of the exact time constants, 1 where no pole is hidden; None where no time constant counts.
     """
 
     lowest: float | None
@@ -79,6 +81,13 @@ class Combined:
     roots: Roots
     far_gain: float
     stable: bool
+    complex_pair: bool
+    seen: float | None
+
+    @property
+    def hidden(self) -> bool:
+        """Whether poles that a zero cancels hold more than a tenth of the time constants."""
+        return len(self.roots.cancelled) > 0 and self.seen is not None and abs(self.seen - 1) > 0.1
 
     @property
     def two_coefficients_overshoot(self) -> bool:
@@ -95,9 +104,11 @@ class Combined:
 def combine_upper(nodes: Sequence[SignalNode], poles: Complex, zeros: Complex) -> Combined:
     """Combine the time constants of the signal nodes that count, and the roots of the upper network, into f_H.
 
+    Of mirror images that carry one signal together, one half is taken.
+
     poles, zeros: of the upper network in rad/s (n,), (m,), both members of every complex pair.
     """
-    rows = [node for node in nodes if node.in_path]
+    rows = counted(nodes).rows
     return _combine(
         [node.time_constant_s for node in rows],
         [node.time_constant_exact_s for node in rows],
@@ -111,10 +122,10 @@ def combine_lower(rows: Sequence[LowerRow], poles: Complex, zeros: Complex) -> C
 
     poles, zeros: of the lower network in rad/s (n,), (m,), both members of every complex pair.
     """
-    counted = [row for row in rows if row.in_path]
+    used = [row for row in rows if row.in_path]
     return _combine(
-        [2 * math.pi * row.edge_hand_hz for row in counted],
-        [2 * math.pi * row.edge_exact_hz for row in counted],
+        [2 * math.pi * row.edge_hand_hz for row in used],
+        [2 * math.pi * row.edge_exact_hz for row in used],
         visible_roots(poles, zeros),
         lower=True,
     )
@@ -218,6 +229,8 @@ def _combine(hand: list[float], exact: list[float], roots: Roots, *, lower: bool
         coefficients=pair,
         roots=roots,
         far_gain=_far_gain(poles, zeros),
+        complex_pair=len(poles) > 0 and bool(poles[np.argmin(np.abs(poles))].imag),
+        seen=pair.b1 / total if total > 0 else None,
         stable=bool(np.all(roots.poles.real <= 0) and np.all(roots.cancelled.real <= 0)),
     )
 

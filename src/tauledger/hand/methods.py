@@ -18,8 +18,8 @@ def methods(
 ) -> tuple[MethodEstimate, ...]:
     """Give every method's f_H and f_L, the recommended one marked; the last of each edge is the exact one.
 
-    upper, lower: of `combine_upper` and `combine_lower`, None where that edge has no hand estimate. upper_hz, lower_hz:
-    the edges of the full network, None where there is none.
+    upper, lower: of `combine_upper` and `combine_lower`, None where the hand side is withheld. upper_hz, lower_hz:
+    the edges of the full network, None where there is none. An edge without poles has no methods.
     No method is recommended where there is no such edge, or where a zero moves it by more than 10 %: no sum of time
     constants sees zeros.
     """
@@ -30,15 +30,17 @@ def recommended(combined: Combined) -> str | None:
     """Name the simplest method that suits the network, None where a zero near the edge defeats them all.
 
     σ < 0.5 and b1²/b2 > 10: the sum of time constants, simple and on the safe side. 0.5 ≤ σ ≤ 1.5: all time constants
-    as separate poles, unless b1 and b2 make a complex pair. Otherwise the two coefficients, with f0 and Q.
+    as separate poles, unless the dominant ones are complex. Otherwise, and where poles are hidden under zeros, the two
+    coefficients.
     """
     if not combined.stable or combined.all_poles is None or combined.with_zeros is None:
         return None
     if abs(combined.with_zeros / combined.all_poles - 1.0) > ZERO_MATTERS:
         return None
     sigma = combined.sigma
-    complex_pair = (combined.coefficients.q or 0.0) > 0.5
-    if sigma is not None and SPLITTING <= sigma <= PULLING and not complex_pair:
+    if combined.hidden:
+        return "two coefficients"
+    if sigma is not None and SPLITTING <= sigma <= PULLING and not combined.complex_pair:
         return "all together"
     # Where one time constant counts, a negative b2 comes only from rounding of a single pole.
     dominant = combined.coefficients.separation > SEPARATED or combined.coefficients.b2 <= 0
@@ -48,7 +50,7 @@ def recommended(combined: Combined) -> str | None:
 
 
 def _edge(edge: Edge, combined: Combined | None, exact_hz: float | None) -> tuple[MethodEstimate, ...]:
-    if combined is None:
+    if combined is None or len(combined.roots.poles) == 0:
         return ()
     what = ("lowest node alone", "all nodes together")
     if edge == "f_low":

@@ -13,6 +13,7 @@ import numpy as np
 
 from tauledger.hand.combine import Combined
 from tauledger.hand.estimate import Edge, LowerRow, SignalNode, StepEstimate
+from tauledger.hand.halves import counted
 from tauledger.quantity import engineering, percent
 
 IN_WORDS = {
@@ -44,10 +45,10 @@ def upper_steps(
     """
     if not (stable and combined.stable) or len(combined.roots.poles) == 0:
         return ()
-    rows = sorted((node for node in nodes if node.in_path), key=lambda node: -node.time_constant_s)
+    rows, parts = list(counted(nodes).rows), counted(nodes).parts
     reasons = {
         "lowest": _lowest_node(rows),
-        "all-nodes": _other_nodes(rows),
+        "all-nodes": _other_nodes(rows) + ("" if parts == 1 else " in each half"),
         "exact-constants": _exact_nodes(rows),
         "two-coefficients": _interaction(combined, "capacitance"),
         "all-poles": _more_poles(combined, "node", "third and higher poles"),
@@ -69,14 +70,14 @@ def lower_steps(
     """
     if not (stable and combined.stable) or len(combined.roots.poles) == 0:
         return ()
-    counted = sorted((row for row in rows if row.in_path), key=lambda row: -row.edge_hand_hz)
+    used = sorted((row for row in rows if row.in_path), key=lambda row: -row.edge_hand_hz)
     reasons = {
-        "lowest": _highest_capacitor(counted),
-        "all-nodes": _other_capacitors(counted),
-        "exact-constants": _exact_capacitors(counted),
+        "lowest": _highest_capacitor(used),
+        "all-nodes": _other_capacitors(used),
+        "exact-constants": _exact_capacitors(used),
         "two-coefficients": _interaction(combined, "capacitor"),
         "all-poles": _more_poles(combined, "capacitor", "third and lower poles"),
-        "zeros": _zeros(combined, nearest=max, levels="the zero at {} ends the fall") + _zero_owner(counted, combined),
+        "zeros": _zeros(combined, nearest=max, levels="the zero at {} ends the fall") + _zero_owner(used, combined),
         "full": "load and device capacitances are real: mid-band is not flat",
     }
     return _walk("f_low", combined, reasons, full_hz)
@@ -190,10 +191,12 @@ def _exact_capacitors(rows: list[LowerRow]) -> str:
 
 def _interaction(combined: Combined, thing: str) -> str:
     poles, pair, sigma = combined.roots.poles, combined.coefficients, combined.sigma
+    if combined.hidden:
+        return f"the output does not see all poles{_cancelled(combined)}"
     if len(poles) == 1:
-        return f"one pole in all, at {_hz(abs(poles[0]) / (2 * math.pi))}"
+        return f"one pole in all, at {_hz(abs(poles[0]) / (2 * math.pi))}" + _cancelled(combined)
     of_sigma = "" if sigma is None else f", σ = {sigma:.2g}"
-    if pair.q is not None and pair.q > 0.5:
+    if combined.complex_pair and pair.q is not None and pair.q > 0.5:
         how = f"the {thing}s pull each other: b1 and b2 give a complex pair, Q = {pair.q:.2f}"
     elif sigma is None:
         how = f"one time constant counts, the poles beside it are at {', '.join(_frequencies(poles)[1:3])}"
