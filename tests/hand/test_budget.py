@@ -4,13 +4,16 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
+from hypothesis import HealthCheck, assume, given, settings
 
 import boards
+import strategies
 import textbook
 from cells import bands_of, bipolar, board
 from tauledger.devices.family import Device
 from tauledger.devices.parts import capacitance, inductance, resistance, transcapacitance, voltage_source
 from tauledger.hand.budget import part_resistances, signal_nodes
+from tauledger.network.assemble import Network, incidence
 from tauledger.network.bands import Bands
 
 Board = tuple[Bands, tuple[Device, ...]]
@@ -236,3 +239,23 @@ def test_a_capacitance_with_both_ends_in_one_node_faces_nothing() -> None:
     )
     assert part_resistances(bands, devices)["CX"].ohm == 0.0
     assert signal_nodes(bands, devices)[0].time_constant_s == 0.0
+
+
+@settings(max_examples=30, derandomize=True, deadline=None, suppress_health_check=[HealthCheck.filter_too_much])
+@given(strategies.networks())
+def test_on_random_amplifiers_hand_is_within_a_per_cent_or_marked_and_the_trace_holds(network: Network) -> None:
+    bands = bands_of(network)
+    assume(bands.sound)
+    rows = signal_nodes(bands, ())
+    assert sum(row.time_constant_exact_s for row in rows) == pytest.approx(trace(bands), rel=1e-9)
+    for row in rows:
+        for line in row.lines:
+            worked = line.resistance
+            assert worked.ohm == pytest.approx(line.resistance_exact_ohm, rel=0.01)
+            assert (worked.source == "rule") == (worked.rule_ohm is None)
+            assert (worked.source == "loop") == (worked.loop_gain is not None)
+    for name, worked in part_resistances(bands, ()).items():
+        a, b = (bands.merged[node] for node in network.part(name).nodes)
+        d = incidence(bands.upper, a, b)
+        exact = d @ np.linalg.inv(bands.upper.conductance.dense(bands.upper.size)) @ d
+        assert worked.ohm == pytest.approx(exact, rel=0.01, abs=1e-9)

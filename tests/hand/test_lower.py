@@ -8,7 +8,7 @@ import pytest
 
 import textbook
 from cells import bands_of, bipolar, board
-from tauledger.devices.parts import capacitance, resistance
+from tauledger.devices.parts import capacitance, inductance, resistance
 from tauledger.hand.estimate import LowerRow
 from tauledger.hand.lower import lower_rows
 from tauledger.network.assemble import Network
@@ -119,3 +119,29 @@ def test_a_capacitor_across_a_supply_makes_no_row() -> None:
         capacitance("CL", "out", "0", 1e-12),
     )
     assert lower_rows(bands, devices) == ()
+
+
+def test_a_capacitor_without_which_the_gain_rises_is_decoupling() -> None:
+    """A supply fed through a choke: open, the collector would have the choke's side as additional load resistance."""
+    bands, devices = board(
+        resistance("RS", "s", "in", 600.0),
+        capacitance("C1", "in", "b", 1e-6),
+        resistance("RB", "b", "0", 20e3),
+        bipolar("Q1", ("out", "b", "0")),
+        resistance("RC", "out", "vcc", 3e3),
+        inductance("L1", "vcc", "0", 10.0),
+        resistance("RV", "vcc", "0", 20e3),
+        capacitance("CV", "vcc", "0", 100e-6),
+    )
+    found = {row.parts[0]: row for row in lower_rows(bands, devices)}
+    assert bands.class_of["L1"] == "open"
+    assert found["CV"].zero_hz > found["CV"].edge_exact_hz
+    assert not found["CV"].in_path
+    assert found["C1"].in_path
+
+
+def test_a_large_coupling_capacitor_stays_in_the_path() -> None:
+    """Its edge is a five-hundredth of the other's, and the signal goes through it all the same."""
+    found = rows(textbook.follower_then_common_source_low_edge())
+    assert found["C2"].edge_hand_hz < 0.003 * found["C3"].edge_hand_hz
+    assert found["C2"].in_path

@@ -30,8 +30,9 @@ def lower_rows(bands: Bands, devices: tuple[Device, ...]) -> tuple[LowerRow, ...
     """Give one row per short capacitor, parallel ones taken together, in the order of the file.
 
     Hand: the resistance across it by looking-in rules, edge 1/(2π·R·C). zero_hz = f_k·H(open)/H(short) is the zero that
-    it makes alone. A row counts if 1 − H(open)/H(short) is at least 5 %, or its part of Σ f_k·(1 − H(open)/H(short)) is
-    at least 2 %: supply decoupling does not. Capacitors with both ends at one node make no row.
+    it makes alone. A row counts if the gain is at least 5 % lower with the capacitor open, or if its part of
+    Σ |f_k·(1 − H(open)/H(short))| is at least 2 %: supply decoupling, which the signal does not need, does not.
+    Capacitors with both ends at one node make no row.
     Raises NetworkError where the mid-band circuit has no unique solution.
     """
     network = bands.network
@@ -82,7 +83,7 @@ def _row(
 
 def _judged(row: LowerRow, weight: float, scale: float) -> LowerRow:
     part = abs(weight * row.edge_exact_hz) / scale if scale else 0.0
-    if abs(weight) >= WEIGHT_IN_PATH or part >= EDGE_IN_PATH:
+    if weight >= WEIGHT_IN_PATH or part >= EDGE_IN_PATH:
         return row
     where = row.title.partition(" ")[2]
     return replace(row, title=f"decoupling {where}", in_path=False)
