@@ -76,7 +76,8 @@ def test_poles_that_the_output_does_not_see_are_named_as_the_reason() -> None:
     assert combined.seen == pytest.approx(60 / 110)
     steps = {step.step: step.why for step in upper_steps(nodes, combined, full_hz=2.65e6)}
     assert steps["two-coefficients"] == (
-        "the output does not see all poles; cancelled by a zero each and left out: the pole at 3.18 MHz"
+        "the output does not see all poles; cancelled by a zero each and left out: the pole at 3.18 MHz; "
+        "cancels the -30 % of the other time constants"
     )
 
 
