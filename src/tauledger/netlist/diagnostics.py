@@ -8,7 +8,7 @@ from __future__ import annotations
 import unicodedata
 from collections.abc import Iterable
 from dataclasses import dataclass
-from difflib import get_close_matches
+from difflib import SequenceMatcher, get_close_matches
 from operator import itemgetter
 
 from tauledger.circuit import fold
@@ -43,8 +43,12 @@ def _shown(character: str) -> str:
 def nearest(name: str, names: Iterable[str], *, otherwise: str = "") -> str:
     """Word a suggestion: the name that looks most like this one (upper and lower case alike), else `otherwise`."""
     spelt = {fold(candidate): candidate for candidate in sorted(names, reverse=True)}
-    close = get_close_matches(fold(name), sorted(spelt), n=1, cutoff=0.6)
-    return f"did you mean {visible(spelt[close[0]])!r}?" if close else otherwise
+    key = fold(name)
+    close = get_close_matches(key, spelt, n=5, cutoff=0.6)
+    if not close:
+        return otherwise
+    best = min(close, key=lambda other: (-SequenceMatcher(None, other, key).ratio(), other))
+    return f"did you mean {visible(spelt[best])!r}?"
 
 
 @dataclass(frozen=True, slots=True)

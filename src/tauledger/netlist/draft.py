@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass, field
 
 from tauledger.circuit import (
@@ -57,9 +58,17 @@ class Draft:
     fixed: set[str] = field(default_factory=set)
 
 
+def check_finite(name: str, value: float) -> None:
+    """Raise InputError for a value of a Change that is no number."""
+    if not math.isfinite(value):
+        raise InputError(f"{visible(name)}: {value} is not a finite number")
+
+
 def draft_for(change: Change) -> Draft:
-    """Begin a circuit that a Change will alter."""
+    """Begin a circuit that a Change will alter; raises InputError for a value that is not finite."""
     draft = Draft()
+    for name, value in (*change.elements, *((parameter, value) for _, parameter, value in change.models)):
+        check_finite(name, value)
     draft.changed_elements = {fold(name): (name, value) for name, value in change.elements}
     draft.changed_models = {(fold(m), fold(p)): (m, p, value) for m, p, value in change.models}
     return draft

@@ -10,7 +10,7 @@ import math
 from tauledger.circuit import ADDED, NO_CHANGE, Change, Circuit, Port, fold
 from tauledger.errors import Diagnostic, InputError, NetlistError
 from tauledger.netlist.diagnostics import Site, gather, nearest, visible
-from tauledger.netlist.draft import Draft, Row, check_all_used, draft_for, finished
+from tauledger.netlist.draft import Draft, Row, check_all_used, check_finite, draft_for, finished
 from tauledger.netlist.flatten import Surroundings, flatten
 from tauledger.netlist.hints import hints
 from tauledger.netlist.items import Setting, Value, flattened
@@ -97,7 +97,7 @@ def _global_parameters(netlist: Netlist, change: Change, scope: Scope, faults: l
             known = [binding.setting.name.text for binding in scope.bindings.values()]
             otherwise = f"there are {', '.join(known)}" if known else "the netlist has no .param"
             raise InputError(f"no parameter is called {visible(name)!r}", nearest(name, known, otherwise=otherwise))
-        _check_finite(name, value)
+        check_finite(name, value)
         scope.fixed[fold(name)] = value
     work_out_all(scope, faults)
 
@@ -139,11 +139,6 @@ def _check_temperature(site: Site, item: Value, celsius: float) -> None:
         raise site.fault(item, f"{celsius:g} °C is no temperature", "absolute zero is -273.15 °C")
 
 
-def _check_finite(name: str, value: float) -> None:
-    if not math.isfinite(value):
-        raise InputError(f"{visible(name)}: {value} is not a finite number")
-
-
 def _check_ground(netlist: Netlist, draft: Draft) -> None:
     if not draft.rows and not draft.elements:
         raise InputError(
@@ -167,7 +162,7 @@ def _currents(draft: Draft) -> dict[str, Port]:
 
 def _add_loads(draft: Draft, change: Change, currents: dict[str, Port]) -> None:
     for load in change.loads:
-        _check_finite("load", load.value)
+        check_finite("load", load.value)
         if load.value < 0.0 or (load.kind == "R" and load.value == 0.0):
             raise InputError(f"a load of {load.value:g} is not possible", "give a value greater than 0")
         port = parse_port(f"v({load.plus},{load.minus})", draft.nodes, currents)

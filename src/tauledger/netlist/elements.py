@@ -128,12 +128,18 @@ def passive(site: Site, card: Fields, letter: str, scope: Scope) -> PassiveCard:
     return PassiveCard((plus, minus), _checked(site, value, number_of(site, value, scope), letter), m)
 
 
+def impossible(letter: str, value: float) -> str:
+    """Say why an R, C or L cannot have this value in SI units; empty where it can."""
+    if value > 0.0 or (value == 0.0 and letter != "R"):
+        return ""
+    least = "greater than 0" if letter == "R" else "0 or more"
+    return f"the value of a {PASSIVES[letter]} must be {least}, not {value:.6g} {UNIT_WORD[letter]}"
+
+
 def _checked(site: Site, value: Value, number: float, letter: str) -> float:
-    word = PASSIVES[letter]
-    if number < 0.0 or (letter == "R" and number == 0.0):
-        least = "greater than 0" if letter == "R" else "0 or more"
-        hint = "join the two nodes instead, or write 1m" if number == 0.0 else ""
-        raise site.fault(value, f"the value of a {word} must be {least}, not {number:.6g} {UNIT_WORD[letter]}", hint)
+    message = impossible(letter, number)
+    if message:
+        raise site.fault(value, message, "join the two nodes instead, or write 1m" if number == 0.0 else "")
     return number
 
 

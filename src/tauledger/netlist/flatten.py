@@ -7,7 +7,7 @@ from dataclasses import dataclass, replace
 
 from tauledger.circuit import GROUND, Element, Instance, ReadingNote, fold
 from tauledger.devices.family import Family
-from tauledger.errors import Diagnostic, NetlistError
+from tauledger.errors import Diagnostic, InputError, NetlistError
 from tauledger.netlist.diagnostics import MOST_DIAGNOSTICS, Site, nearest, visible
 from tauledger.netlist.draft import MOST_ELEMENTS, MOST_NESTED_INSTANCES, Draft, Row, node_number
 from tauledger.netlist.elements import (
@@ -15,6 +15,7 @@ from tauledger.netlist.elements import (
     InstanceCard,
     device,
     fields,
+    impossible,
     instance,
     multiplicity,
     passive,
@@ -79,6 +80,8 @@ def _element(
         part = passive(site, card, letter, scope)
         m = _product(around, part.m, name, site)
         value = _changed(draft, name, part.value)
+        if problem := impossible(letter, value):
+            raise InputError(f"{name}: {problem}")
         scaled = value * m if letter == "C" else value / m
         a, b = (_node(netlist, draft, around, node) for node in part.nodes)
         draft.rows.append(Row(letter, name, a, b, scaled, number, around.path))

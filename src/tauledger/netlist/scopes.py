@@ -91,6 +91,8 @@ def work_out_all(scope: Scope, faults: list[Diagnostic]) -> None:
         except RecursionError:
             message = "parameters and formulas are nested too deeply"
             faults.extend(binding.site.fault(binding.setting, message).diagnostics)
+            # The others of the chain would say the same.
+            return
 
 
 def number_of(site: Site, value: Value, scope: Scope, *, what: str = "a number or a parameter") -> float:
