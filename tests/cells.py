@@ -2,8 +2,7 @@
 
 from __future__ import annotations
 
-import math
-
+import pytest
 from hypothesis import strategies as st
 
 from tauledger.circuit import Port
@@ -125,6 +124,6 @@ def trees(draw: st.DrawFn) -> tuple[Part, ...]:
     return tuple(part for part in parts if len(set(part.nodes[:2])) == 2 and len(set(part.nodes[2:])) != 1)
 
 
-def finite(value: float) -> bool:
-    """Whether a resistance is a number that can be compared."""
-    return math.isfinite(value)
+def near(expected: object, rel: float = 1e-6) -> object:
+    """Compare within a relative tolerance alone: pytest's own 1e-12 beside it would swallow picofarads."""
+    return pytest.approx(expected, rel=rel, abs=0.0)

@@ -9,7 +9,7 @@ from hypothesis import HealthCheck, assume, given, settings
 import boards
 import strategies
 import textbook
-from cells import bands_of, bipolar, board
+from cells import bands_of, bipolar, board, near
 from tauledger.devices.family import Device
 from tauledger.devices.parts import capacitance, inductance, resistance, transcapacitance, voltage_source
 from tauledger.hand.budget import part_resistances, signal_nodes
@@ -67,7 +67,7 @@ def test_exact_constants_of_all_rows_add_to_the_trace(make: object) -> None:
     assert callable(make)
     bands, devices = make()
     rows = signal_nodes(bands, devices)
-    assert sum(row.time_constant_exact_s for row in rows) == pytest.approx(trace(bands), rel=1e-12)
+    assert sum(row.time_constant_exact_s for row in rows) == near(trace(bands), rel=1e-12)
 
 
 def test_a_transcapacitance_is_in_the_exact_constant_and_not_in_the_hand_one() -> None:
@@ -80,7 +80,7 @@ def test_a_transcapacitance_is_in_the_exact_constant_and_not_in_the_hand_one() -
     without, with_it = board(*parts), board(*parts, extra)
     plain, extended = signal_nodes(*without), signal_nodes(*with_it)
     assert [row.time_constant_s for row in plain] == [row.time_constant_s for row in extended]
-    assert sum(row.time_constant_exact_s for row in extended) == pytest.approx(trace(with_it[0]), rel=1e-12)
+    assert sum(row.time_constant_exact_s for row in extended) == near(trace(with_it[0]), rel=1e-12)
     assert sum(row.time_constant_exact_s for row in extended) > 1.05 * sum(row.time_constant_exact_s for row in plain)
 
 
@@ -93,7 +93,7 @@ def test_hand_and_exact_constants_differ_by_the_textbook_output_side_alone() -> 
             for term in line.capacitances
             if term.text.startswith("1 + 1/|A|")
         )
-        assert row.time_constant_s - extra == pytest.approx(row.time_constant_exact_s, rel=1e-9)
+        assert row.time_constant_s - extra == near(row.time_constant_exact_s, rel=1e-9)
 
 
 def test_six_time_constants_of_two_common_source_stages() -> None:
@@ -102,22 +102,22 @@ def test_six_time_constants_of_two_common_source_stages() -> None:
     across = part_resistances(bands, ())
     tau = {name: across[name].ohm * bands.network.part(name).value for name in across}
     printed = {"M1.c_mu": 320, "M2.c_mu": 315, "M1.c_pi": 50, "M2.c_pi": 100, "Cdb1": 20, "Cdb2": 10}
-    assert tau == pytest.approx({name: 1e-9 * ns for name, ns in printed.items()}, rel=1e-9)
+    assert tau == near({name: 1e-9 * ns for name, ns in printed.items()}, rel=1e-9)
     assert all(seen.source == "rule" for seen in across.values())
 
 
 def test_resistance_across_the_feedback_capacitance_of_a_common_emitter() -> None:
     """Kumar and Jain, Electronic Devices and Circuits, Ex. 10.16: R' + R_L + gm·R'·R_L = 58 125 ohm."""
     across = part_resistances(bands_of(textbook.common_emitter_600_ohm()), ())
-    assert across["Q1.c_mu"].ohm == pytest.approx(58125.0, rel=1e-9)
+    assert across["Q1.c_mu"].ohm == near(58125.0, rel=1e-9)
 
 
 def test_constants_of_a_cascode_with_finite_r_o() -> None:
     """Practice values after Sedra and Smith, 8th ed.: tau_out printed 3.992 ns (3.990 computed), sum 4.98 ns."""
     bands = bands_of(boards.cascode())
     rows = {row.name: row for row in signal_nodes(bands, ())}
-    assert rows["out"].time_constant_s == pytest.approx(3.990e-9, rel=1e-3)
-    assert sum(row.time_constant_exact_s for row in rows.values()) == pytest.approx(4.9735e-9, rel=1e-4)
+    assert rows["out"].time_constant_s == near(3.990e-9, rel=1e-3)
+    assert sum(row.time_constant_exact_s for row in rows.values()) == near(4.9735e-9, rel=1e-4)
 
 
 def test_inner_nodes_fold_into_the_row_of_their_terminal() -> None:
@@ -125,7 +125,7 @@ def test_inner_nodes_fold_into_the_row_of_their_terminal() -> None:
     base = rows["b"]
     assert set(base.members) == {"in", "b", "Q1'b"}
     assert {line.node for line in base.lines} == {"b", "base of Q1, inside"}
-    assert base.time_constant_s == pytest.approx(sum(line.time_constant_s for line in base.lines))
+    assert base.time_constant_s == near(sum(line.time_constant_s for line in base.lines))
     inside = next(line for line in base.lines if "inside" in line.node)
     outside = next(line for line in base.lines if "inside" not in line.node)
     assert inside.resistance.ohm > outside.resistance.ohm + 50.0
@@ -136,7 +136,7 @@ def test_the_dominant_line_stands_first_and_r_times_c_is_the_constant() -> None:
         taus = [abs(line.time_constant_s) for line in row.lines]
         assert taus == sorted(taus, reverse=True)
         assert row.resistance_hand_ohm == row.lines[0].resistance.ohm
-        assert row.resistance_hand_ohm * row.capacitance_f == pytest.approx(row.time_constant_s)
+        assert row.resistance_hand_ohm * row.capacitance_f == near(row.time_constant_s)
 
 
 def test_a_base_behind_r_b_has_its_own_row_where_the_terminal_is_at_ac_ground() -> None:
@@ -144,7 +144,7 @@ def test_a_base_behind_r_b_has_its_own_row_where_the_terminal_is_at_ac_ground() 
     assert "b2" not in rows
     inside = rows["b2 (inside Q2)"]
     assert inside.title == "base of Q2, inside (b2)"
-    assert inside.resistance_exact_ohm == pytest.approx(120.0, rel=0.02)
+    assert inside.resistance_exact_ohm == near(120.0, rel=0.02)
     assert rows["emitter (inside Q1)"].title == "emitter of Q1, inside"
 
 
@@ -161,7 +161,7 @@ def test_names_are_unique_and_no_inner_name_shows() -> None:
 def test_supply_decoupling_is_listed_off_the_path() -> None:
     rows = {row.name: row for row in signal_nodes(*decoupled_stage())}
     assert not rows["vcc"].in_path
-    assert rows["vcc"].time_constant_s == pytest.approx(0.596 * 100e-9, rel=0.01)
+    assert rows["vcc"].time_constant_s == near(0.596 * 100e-9, rel=0.01)
     assert rows["b"].in_path
     assert rows["out"].in_path
 
@@ -190,7 +190,7 @@ def test_a_second_output_that_nobody_listens_to_is_off_the_path() -> None:
             )
         )
     }
-    assert rows["left"].time_constant_s == pytest.approx(rows["right"].time_constant_s, rel=0.02)
+    assert rows["left"].time_constant_s == near(rows["right"].time_constant_s, rel=0.02)
     assert not rows["left"].in_path
     assert rows["right"].in_path
 
@@ -227,7 +227,7 @@ def test_an_inductor_that_is_short_at_midband_joins_its_ends() -> None:
         )
     )
     assert [row.members for row in rows] == [("a", "out")]
-    assert rows[0].time_constant_s == pytest.approx(150e-12 * 50e3 / 1.05e3)
+    assert rows[0].time_constant_s == near(150e-12 * 50e3 / 1.05e3)
 
 
 def test_a_capacitance_with_both_ends_in_one_node_faces_nothing() -> None:
@@ -247,11 +247,11 @@ def test_on_random_amplifiers_hand_is_within_a_per_cent_or_marked_and_the_trace_
     bands = bands_of(network)
     assume(bands.sound)
     rows = signal_nodes(bands, ())
-    assert sum(row.time_constant_exact_s for row in rows) == pytest.approx(trace(bands), rel=1e-9)
+    assert sum(row.time_constant_exact_s for row in rows) == near(trace(bands), rel=1e-9)
     for row in rows:
         for line in row.lines:
             worked = line.resistance
-            assert worked.ohm == pytest.approx(line.resistance_exact_ohm, rel=0.01)
+            assert worked.ohm == near(line.resistance_exact_ohm, rel=0.01)
             assert (worked.source == "rule") == (worked.rule_ohm is None)
             assert (worked.source == "loop") == (worked.loop_gain is not None)
     for name, worked in part_resistances(bands, ()).items():

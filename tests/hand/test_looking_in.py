@@ -7,7 +7,7 @@ from hypothesis import given, settings
 
 import boards
 import textbook as networks
-from cells import bands_of, bipolar, board, circuit_of, trees
+from cells import bands_of, bipolar, board, circuit_of, near, trees
 from tauledger.devices.parts import Part, resistance, transconductance
 from tauledger.hand.equivalent import EquivalentCircuit, upper_circuit
 from tauledger.hand.estimate import LookingIn
@@ -31,22 +31,22 @@ def test_on_a_tree_of_cells_the_rules_give_the_exact_resistance(parts: tuple[Par
     for node in circuit.nodes:
         worked = looking_in(circuit, node, node)
         assert worked.source == "rule"
-        assert worked.ohm == pytest.approx(circuit.z(node, node), rel=1e-6)
+        assert worked.ohm == near(circuit.z(node, node), rel=1e-6)
 
 
 def test_common_gate_with_r_o_and_its_load() -> None:
     """Sedra and Smith, 8th ed., Ex. 10.6: with r_o = R_L = 20 kohm the simple 1/gm ‖ R_sig (488 ohm) is 48 % low."""
     circuit = of(networks.common_gate())
-    assert into(circuit, "e").ohm == pytest.approx(930.23, rel=1e-4)
-    assert into(circuit, "out").ohm == pytest.approx(19535, rel=1e-4)
+    assert into(circuit, "e").ohm == near(930.23, rel=1e-4)
+    assert into(circuit, "out").ohm == near(19535, rel=1e-4)
     assert into(circuit, "e").source == into(circuit, "out").source == "rule"
 
 
 def test_cascode_with_finite_r_o() -> None:
     """A MOS cascode, practice values after Sedra and Smith, 8th ed.: 740.7 ohm between the transistors."""
     circuit = of(boards.cascode())
-    assert into(circuit, "x").ohm == pytest.approx(740.74, rel=1e-4)
-    assert into(circuit, "out").ohm == pytest.approx(49877, rel=1e-4)
+    assert into(circuit, "x").ohm == near(740.74, rel=1e-4)
+    assert into(circuit, "out").ohm == near(49877, rel=1e-4)
 
 
 def test_output_of_an_emitter_follower() -> None:
@@ -54,7 +54,7 @@ def test_output_of_an_emitter_follower() -> None:
     circuit = of(networks.emitter_follower())
     worked = into(circuit, "out")
     into_emitter = {r.name: r.ohm for r in worked.resistances}["into common terminal of Q1"]
-    assert into_emitter == pytest.approx(27.72, rel=1e-3)
+    assert into_emitter == near(27.72, rel=1e-3)
 
 
 def test_the_line_reads_as_on_paper() -> None:
@@ -74,7 +74,7 @@ def test_what_carries_less_than_a_thousandth_is_counted_but_not_printed() -> Non
     circuit = circuit_of(resistance("R1", "a", "0", 1e3), resistance("R2", "a", "0", 2e6), output="a")
     worked = into(circuit, "a")
     assert "R2" not in worked.text
-    assert worked.ohm == pytest.approx(circuit.z("a", "a"), rel=1e-12)
+    assert worked.ohm == near(circuit.z("a", "a"), rel=1e-12)
 
 
 def shunt_feedback(r_f: float) -> EquivalentCircuit:
@@ -94,7 +94,7 @@ def test_shunt_feedback_is_one_loop_that_lowers_the_resistance(node: str) -> Non
     assert worked.source == "loop"
     assert worked.loop_gain is not None
     assert worked.loop_gain > 1.0
-    assert worked.ohm * (1.0 + worked.loop_gain) == pytest.approx(loop_resistance(circuit, node, 0), rel=0.005)
+    assert worked.ohm * (1.0 + worked.loop_gain) == near(loop_resistance(circuit, node, 0), rel=0.005)
     assert "gm(Q1) = 0" in worked.text
 
 
@@ -107,7 +107,7 @@ def test_the_resistance_without_one_gm_is_that_of_the_network_built_without_it()
         resistance("ro", "c", "0", 80e3),
         output="c",
     )
-    assert loop_resistance(shunt_feedback(10e3), "c", 0) == pytest.approx(dead.z("c", "c"), rel=1e-9)
+    assert loop_resistance(shunt_feedback(10e3), "c", 0) == near(dead.z("c", "c"), rel=1e-9)
 
 
 def test_feedback_too_weak_to_matter_is_left_to_the_rule() -> None:
@@ -143,8 +143,8 @@ def test_a_bootstrapped_base_is_worked_branch_by_branch() -> None:
     )
     worked = into(circuit, "b")
     assert worked.source == "branch"
-    assert worked.ohm == pytest.approx(circuit.z("b", "b"), rel=0.01)
-    assert sum(1.0 / r.ohm for r in worked.resistances) == pytest.approx(1.0 / worked.ohm, rel=0.01)
+    assert worked.ohm == near(circuit.z("b", "b"), rel=0.01)
+    assert sum(1.0 / r.ohm for r in worked.resistances) == near(1.0 / worked.ohm, rel=0.01)
     raised = next(r for r in worked.resistances if r.name.startswith("RB"))
     assert raised.ohm > 20 * 47e3
 
@@ -161,7 +161,7 @@ def test_a_bridge_of_resistors_fits_no_rule_and_says_so() -> None:
     )
     worked = into(circuit, "a")
     assert worked.source == "branch"
-    assert worked.ohm == pytest.approx(circuit.z("a", "a"), rel=1e-9)
+    assert worked.ohm == near(circuit.z("a", "a"), rel=1e-9)
     assert worked.rule_ohm is not None
 
 
@@ -211,7 +211,7 @@ def test_a_source_that_inverts_keeps_its_sign() -> None:
     )
     worked = into(circuit, "a")
     assert worked.source == "rule"
-    assert worked.ohm == pytest.approx(1e3 / (1.0 - 0.4), rel=1e-9)
+    assert worked.ohm == near(1e3 / (1.0 - 0.4), rel=1e-9)
 
 
 def test_a_resistor_from_control_to_ground_is_the_source_network_and_no_r_pi() -> None:
@@ -228,7 +228,7 @@ def test_a_plain_resistor_beside_a_lone_source_is_its_r_o() -> None:
         resistance("RG", "g", "0", 10e3),
         output="d",
     )
-    assert circuit.cells[0].r_o == pytest.approx(50e3)
+    assert circuit.cells[0].r_o == near(50e3)
     assert into(circuit, "x").source == "rule"
 
 
@@ -242,5 +242,5 @@ def test_a_mirror_behind_base_resistances_is_looked_into_by_rule() -> None:
     circuit = upper_circuit(bands, devices)
     worked = into(circuit, "m")
     assert worked.source == "rule"
-    assert worked.ohm == pytest.approx(circuit.z("m", "m"), rel=1e-6)
+    assert worked.ohm == near(circuit.z("m", "m"), rel=1e-6)
     assert "diode-connected Q1" in worked.text

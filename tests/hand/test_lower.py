@@ -4,10 +4,8 @@ from __future__ import annotations
 
 import math
 
-import pytest
-
 import textbook
-from cells import bands_of, bipolar, board
+from cells import bands_of, bipolar, board, near
 from tauledger.devices.parts import capacitance, inductance, resistance
 from tauledger.hand.estimate import LowerRow
 from tauledger.hand.lower import lower_rows
@@ -25,18 +23,18 @@ def test_three_capacitors_of_a_follower_and_a_common_source() -> None:
     """
     found = rows(textbook.follower_then_common_source_low_edge())
     tau = {name: row.resistance.ohm * row.farad for name, row in found.items()}
-    assert tau == pytest.approx({"C1": 0.0502, "C2": 0.15, "C3": 0.000318}, rel=1e-9)
-    assert sum(row.edge_hand_hz for row in found.values()) == pytest.approx(504.72, rel=1e-5)
-    assert found["C3"].zero_hz == pytest.approx(200.19, rel=1e-4)
+    assert tau == near({"C1": 0.0502, "C2": 0.15, "C3": 0.000318}, rel=1e-9)
+    assert sum(row.edge_hand_hz for row in found.values()) == near(504.72, rel=1e-5)
+    assert found["C3"].zero_hz == near(200.19, rel=1e-4)
     assert found["C1"].zero_hz == found["C2"].zero_hz == 0.0
 
 
 def test_two_edges_designed_to_be_equal() -> None:
     """Kumar and Jain, Ex. 10.15: 25 Hz each for C_B and C_E; zero of C_E printed 0.26 Hz."""
     found = rows(textbook.two_equal_low_edges())
-    assert found["CB"].edge_hand_hz == pytest.approx(25.0, rel=1e-3)
-    assert found["CE"].edge_hand_hz == pytest.approx(25.0, rel=1e-3)
-    assert found["CE"].zero_hz == pytest.approx(0.26, rel=0.01)
+    assert found["CB"].edge_hand_hz == near(25.0, rel=1e-3)
+    assert found["CE"].edge_hand_hz == near(25.0, rel=1e-3)
+    assert found["CE"].zero_hz == near(0.26, rel=0.01)
 
 
 def test_three_comparable_edges() -> None:
@@ -45,9 +43,9 @@ def test_three_comparable_edges() -> None:
     The printed 419.6 Hz of the bypass has r_e without the base's source resistance taken exactly; the network 422.4 Hz.
     """
     found = rows(textbook.three_low_edges())
-    assert found["C1"].edge_hand_hz == pytest.approx(1376.187, rel=1e-6)
-    assert found["C3"].edge_hand_hz == pytest.approx(230.6593, rel=1e-6)
-    assert found["C2"].resistance.ohm == pytest.approx(7.5361, rel=1e-4)
+    assert found["C1"].edge_hand_hz == near(1376.187, rel=1e-6)
+    assert found["C3"].edge_hand_hz == near(230.6593, rel=1e-6)
+    assert found["C2"].resistance.ohm == near(7.5361, rel=1e-4)
 
 
 def test_rules_equal_the_exact_resistance_in_all_worked_examples() -> None:
@@ -58,8 +56,8 @@ def test_rules_equal_the_exact_resistance_in_all_worked_examples() -> None:
     ):
         for row in rows(make()).values():
             assert row.resistance.source == "rule"
-            assert row.resistance.ohm == pytest.approx(row.resistance_exact_ohm, rel=1e-9)
-            assert row.edge_hand_hz == pytest.approx(row.edge_exact_hz, rel=1e-9)
+            assert row.resistance.ohm == near(row.resistance_exact_ohm, rel=1e-9)
+            assert row.edge_hand_hz == near(row.edge_exact_hz, rel=1e-9)
 
 
 def test_titles_say_what_a_capacitor_is_for() -> None:
@@ -78,8 +76,8 @@ def test_parallel_capacitors_are_one_row() -> None:
     )
     (row,) = lower_rows(bands_of(network), ())
     assert row.parts == ("C1", "C2")
-    assert row.farad == pytest.approx(3e-6)
-    assert row.edge_hand_hz == pytest.approx(1.0 / (2.0 * math.pi * 10e3 * 3e-6))
+    assert row.farad == near(3e-6)
+    assert row.edge_hand_hz == near(1.0 / (2.0 * math.pi * 10e3 * 3e-6))
 
 
 def test_supply_decoupling_is_a_row_off_the_path() -> None:
@@ -108,7 +106,7 @@ def test_the_zero_of_a_bypass_is_its_edge_times_the_gain_left_when_open() -> Non
         capacitance("CE", "e", "0", 100e-6),
     )
     (row,) = lower_rows(bands, devices)
-    assert row.zero_hz == pytest.approx(1.0 / (2.0 * math.pi * 1e3 * 100e-6), rel=1e-6)
+    assert row.zero_hz == near(1.0 / (2.0 * math.pi * 1e3 * 100e-6), rel=1e-6)
 
 
 def test_a_capacitor_across_a_supply_makes_no_row() -> None:

@@ -7,7 +7,7 @@ from dataclasses import replace
 
 import pytest
 
-from cells import circuit_of
+from cells import circuit_of, near
 from tauledger.devices.parts import Part, resistance, transconductance
 from tauledger.hand.equivalent import Cell
 from tauledger.hand.rules import RULES, Outside
@@ -58,7 +58,7 @@ MOS = (
 def test_the_closed_form_is_the_driving_point_resistance(
     rule: Rule, cell: Cell, parts: tuple[Part, ...], node: str
 ) -> None:
-    assert rule.ohm(cell, OUTSIDE) == pytest.approx(solved(*parts, node=node, opened=node), rel=1e-9)
+    assert rule.ohm(cell, OUTSIDE) == near(solved(*parts, node=node, opened=node), rel=1e-9)
 
 
 def test_a_diode_connected_transistor_with_body_effect_is_exact_from_both_ends() -> None:
@@ -70,8 +70,8 @@ def test_a_diode_connected_transistor_with_body_effect_is_exact_from_both_ends()
     cell = Cell("M1", "o", "s", "o", GM, math.inf, R_O, "0", GMB)
     top = circuit_of(*parts, resistance("RS", "s", "0", R_E), output="o").z("o", "o")
     bottom = circuit_of(*parts, resistance("RD", "o", "0", R_C), output="s").z("s", "s")
-    assert DIODE_TOP.ohm(cell, OUTSIDE) == pytest.approx(top, rel=1e-9)
-    assert DIODE_BOTTOM.ohm(cell, OUTSIDE) == pytest.approx(bottom, rel=1e-9)
+    assert DIODE_TOP.ohm(cell, OUTSIDE) == near(top, rel=1e-9)
+    assert DIODE_BOTTOM.ohm(cell, OUTSIDE) == near(bottom, rel=1e-9)
 
 
 def test_a_transistor_diode_connected_outside_its_series_resistances_is_one_resistance() -> None:
@@ -82,7 +82,7 @@ def test_a_transistor_diode_connected_outside_its_series_resistances_is_one_resi
         resistance("Q1", "p", "0", BETA / GM, "g_pi"),
         resistance("Q1", "o", "0", R_O, "g_o"),
     )
-    assert diode_through_resistance_ohm(BIPOLAR, 120.0, 3.0) == pytest.approx(
+    assert diode_through_resistance_ohm(BIPOLAR, 120.0, 3.0) == near(
         circuit_of(*parts, output="m").z("m", "m"), rel=1e-9
     )
 
@@ -95,7 +95,7 @@ def test_a_short_form_is_the_limit_of_its_rule_for_high_r_o(rule: Rule) -> None:
     bipolar = rule in (BASE, EMITTER, COLLECTOR)
     cell = Cell("Q1", "p", "s", "o", GM, BETA / GM if bipolar else math.inf, 1e9)
     around = Outside(control=0.0 if rule is COLLECTOR else R_B, common=R_E, output=R_C)
-    assert rule.short_ohm(cell, around) == pytest.approx(rule.ohm(cell, around), rel=1e-4)
+    assert rule.short_ohm(cell, around) == near(rule.ohm(cell, around), rel=1e-4)
 
 
 @pytest.mark.parametrize("rule", RULES, ids=lambda rule: rule.name)
@@ -117,7 +117,7 @@ def test_open_surroundings_give_a_resistance_and_never_a_nan() -> None:
 
 def test_base_with_an_open_emitter_ends_in_r_o_and_the_collector() -> None:
     value = BASE.ohm(BIPOLAR, Outside(0.0, math.inf, R_C))
-    assert value == pytest.approx(BIPOLAR.r_pi + (BETA + 1) * R_O + R_C)
+    assert value == near(BIPOLAR.r_pi + (BETA + 1) * R_O + R_C)
 
 
 def test_emitter_of_a_common_emitter_design_example() -> None:
@@ -127,7 +127,7 @@ def test_emitter_of_a_common_emitter_design_example() -> None:
     """
     cell = Cell("Q1", "p", "s", "o", 0.04, 2500.0)
     seen = EMITTER.ohm(cell, Outside(control=5e3 * 100e3 / 105e3))
-    assert seen == pytest.approx(72.0, rel=0.005)
+    assert seen == near(72.0, rel=0.005)
 
 
 def test_source_of_a_cascode_transistor_with_finite_r_o() -> None:
@@ -136,23 +136,23 @@ def test_source_of_a_cascode_transistor_with_finite_r_o() -> None:
     The network gives (r_o + R_L)/(1 + gm·r_o) = 746.3 ohm; 1/gm alone would be 500 ohm.
     """
     cell = Cell("M2", "0", "x", "out", 2e-3, math.inf, 100e3)
-    assert SOURCE.ohm(cell, Outside(output=50e3)) == pytest.approx(746.0, rel=1e-3)
+    assert SOURCE.ohm(cell, Outside(output=50e3)) == near(746.0, rel=1e-3)
 
 
 def test_drain_above_a_degeneration_resistance() -> None:
     """Practice values after Sedra and Smith, 8th ed., ch. 10: printed r_o2·gm·r_o1 = 20 Mohm, in full 20.2."""
     cell = Cell("M2", "0", "x", "out", 2e-3, math.inf, 100e3)
-    assert DRAIN.ohm(cell, Outside(common=100e3)) == pytest.approx(20.2e6, rel=1e-3)
+    assert DRAIN.ohm(cell, Outside(common=100e3)) == near(20.2e6, rel=1e-3)
 
 
 def test_the_body_effect_lowers_the_resistance_into_a_source_by_gm_over_gm_plus_gmb() -> None:
     cell = Cell("M1", "g", "s", "0", 2e-3, math.inf, math.inf, "0", 0.4e-3)
-    assert SOURCE.ohm(cell, Outside()) == pytest.approx(1 / 2.4e-3)
+    assert SOURCE.ohm(cell, Outside()) == near(1 / 2.4e-3)
 
 
 def test_a_body_away_from_ground_is_left_to_the_solved_network() -> None:
     cell = Cell("M1", "g", "s", "d", 2e-3, math.inf, math.inf, "w", 0.4e-3)
-    assert SOURCE.ohm(cell, Outside()) == pytest.approx(1 / 2e-3)
+    assert SOURCE.ohm(cell, Outside()) == near(1 / 2e-3)
 
 
 def test_nothing_flows_into_a_gate() -> None:
