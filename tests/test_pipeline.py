@@ -1,0 +1,218 @@
+"""The whole walk on the demo boards, with ngspice as the judge."""
+
+from __future__ import annotations
+
+import math
+from pathlib import Path
+
+import numpy as np
+import pytest
+
+from tauledger.circuit import NO_CHANGE, Change
+from tauledger.devices.catalogue import observations
+from tauledger.engine.client import Engine
+from tauledger.engine.grid import decades
+from tauledger.netlist import elaborate, read
+from tauledger.network.agreement import agreement
+from tauledger.network.bands import classify
+from tauledger.network.constants import group_delay, open_constants
+from tauledger.network.midband import find_midband
+from tauledger.network.recompute import without
+from tauledger.network.shares import find_shares
+from tauledger.network.solve import response
+from tauledger.numbers import Numbers, recompute, solve
+from tauledger.pipeline import review
+from tauledger.record import Review
+
+FIXTURES = Path(__file__).parent.parent / "fixtures"
+BOARDS = sorted(path.name for path in FIXTURES.glob("*.cir"))
+HALF_PERCENT = 0.005
+
+# A coupled stage whose band edges lie a decade apart: no plateau of half a decade.
+NARROW = """River-level gauge, narrow-band tap behind the echo preamplifier
+VIN in 0 AC 1
+RS in a 1k
+C1 a b 8n
+RB b 0 10k
+GM c 0 b 0 10m
+RC c 0 2k
+CL c 0 5n
+.ac dec 20 10 1meg
+.print ac v(c)
+.end
+"""
+
+
+def numbers_of(path: Path, engine: Engine, change: Change = NO_CHANGE) -> Numbers:
+    return solve(read(path), change, engine)
+
+
+@pytest.mark.parametrize("board", BOARDS)
+def test_network_and_engine_agree_to_rounding(board: str, engine: Engine) -> None:
+    numbers = numbers_of(FIXTURES / board, engine)
+    assert numbers.agreement is not None
+    assert numbers.agreement.max_relative_error <= 1e-7
+    low = numbers.edges.f_low.hz if numbers.edges.f_low and numbers.edges.f_low.hz else 1.0
+    assert numbers.edges.f_high is not None
+    assert numbers.edges.f_high.hz is not None
+    grid = decades(low / 100.0, 100.0 * numbers.edges.f_high.hz, 20)
+    sweep = engine.sweep(grid)
+    near = agreement(grid, response(numbers.network, grid), sweep.response, numbers.midband.gain)
+    assert near.max_relative_error <= 1e-9
+
+
+@pytest.mark.parametrize("board", BOARDS)
+def test_band_edges_are_where_ngspice_falls_by_3_db(board: str, engine: Engine) -> None:
+    numbers = numbers_of(FIXTURES / board, engine)
+    assert numbers.simulated is not None
+    for edge, simulated_hz, outwards in (
+        (numbers.edges.f_low, numbers.simulated.f_low_hz, -1e-4),
+        (numbers.edges.f_high, numbers.simulated.f_high_hz, 1e-4),
+    ):
+        if edge is None or edge.hz is None:
+            assert simulated_hz is None
+            continue
+        assert simulated_hz == pytest.approx(edge.hz, rel=1e-6)
+        reference_hz = numbers.midband.frequency_hz or 1e-6 * edge.hz
+        gains = np.abs(engine.sweep([reference_hz, edge.hz * (1 - outwards), edge.hz * (1 + outwards)]).response)
+        assert gains[1] > gains[0] / math.sqrt(2.0) > gains[2]
+
+
+@pytest.mark.parametrize(
+    ("board", "parts"),
+    [
+        ("echo_preamp.cir", ("CL", "C1", "C2", "C7")),
+        ("echo_cascode.cir", ("CL", "C5", "C6")),
+        ("cable_driver.cir", ("CL", "L1", "C1", "C2")),
+        ("gain_pair.cir", ("CL", "C3", "C8")),
+        ("pair.cir", ("CLP", "CLN")),
+    ],
+)
+def test_shares_are_what_ngspice_does_when_a_part_changes_by_half_a_per_cent(
+    board: str, parts: tuple[str, ...], engine: Engine
+) -> None:
+    path = FIXTURES / board
+    numbers = numbers_of(path, engine)
+    for name in parts:
+        for edge in (numbers.edges.f_low, numbers.edges.f_high):
+            if edge is None or edge.hz is None:
+                continue
+            share = find_shares(numbers.network, numbers.midband, edge.hz, numbers.bands.class_of).parts[name]
+            moved = [
+                edge_in_engine(path, {name: 1.0 + change}, numbers, edge.hz, engine)
+                for change in (HALF_PERCENT, -HALF_PERCENT)
+            ]
+            measured = -math.log(moved[0] / moved[1]) / math.log((1.0 + HALF_PERCENT) / (1.0 - HALF_PERCENT))
+            assert share == pytest.approx(measured, abs=0.005), (name, edge.hz)
+
+
+@pytest.mark.parametrize(("board", "part"), [("echo_preamp.cir", "CL"), ("cable_driver.cir", "L1")])
+def test_recomputed_edges_are_those_of_ngspice_with_the_part_changed(board: str, part: str, engine: Engine) -> None:
+    path = FIXTURES / board
+    numbers = numbers_of(path, engine)
+    again = recompute(numbers, {part: 0.9})
+    assert again.f_high is not None
+    simulated = edge_in_engine(path, {part: 0.9}, numbers, again.f_high, engine)
+    assert again.f_high == pytest.approx(simulated, rel=1e-4)
+
+
+@pytest.mark.parametrize("board", BOARDS)
+def test_delays_of_all_parts_add_to_the_phase_slope_of_ngspice(board: str, engine: Engine) -> None:
+    numbers = numbers_of(FIXTURES / board, engine)
+    assert numbers.edges.f_high is not None
+    assert numbers.edges.f_high.hz is not None
+    f_mid = numbers.midband.frequency_hz or numbers.edges.f_high.hz / 1e3
+    step = 1e-3
+    around = engine.sweep([f_mid * (1 - step), f_mid * (1 + step)]).response
+    slope = -float(np.angle(around[1] / around[0])) / (2 * math.pi * f_mid * 2 * step)
+    delays = group_delay(numbers.network, f_mid)
+    scale = max(abs(delay) for delay in delays.values())
+    assert sum(delays.values()) == pytest.approx(slope, rel=1e-3, abs=1e-3 * scale)
+
+
+@pytest.mark.parametrize("board", ["echo_preamp.cir", "echo_cascode.cir", "gain_pair.cir"])
+def test_decoupling_is_in_no_sum_of_the_path(board: str, engine: Engine) -> None:
+    numbers = numbers_of(FIXTURES / board, engine)
+    found = review_of(board, engine)
+    before = open_constants(numbers.bands)
+    off_path = frozenset(row.name for row in before.parts if not row.in_path and row.kind == "capacitance")
+    assert {"echo_preamp.cir": "C7", "echo_cascode.cir": "C9", "gain_pair.cir": "C9"}[board] in (
+        off_path | {part.name for part in found.parts if part.klass == "short"}
+    )
+    network = without(numbers.network, off_path)
+    after = open_constants(classify(network, find_midband(network)))
+    assert after.weighted_sum_s == pytest.approx(before.weighted_sum_s, rel=0.01)
+    path_before = sum(row.time_constant_s for row in before.parts if row.in_path)
+    path_after = sum(row.time_constant_s for row in after.parts if row.in_path)
+    assert path_after == pytest.approx(path_before, rel=0.01)
+
+
+def test_narrow_band_gives_shares_and_withholds_the_hand_tables(tmp_path: Path, engine: Engine) -> None:
+    path = tmp_path / "narrow.cir"
+    path.write_text(NARROW)
+    found = review(path, engine=engine)
+    assert found.midband.from_hz is None
+    assert found.f_high is not None
+    assert found.f_low is not None
+    assert found.f_high.exact_hz is not None
+    assert found.f_low.exact_hz is not None
+    assert 5 < found.f_high.exact_hz / found.f_low.exact_hz < 20
+    assert found.nodes == ()
+    assert found.steps == ()
+    assert any(note.note == "no-plateau" for note in found.notes)
+    numbers = numbers_of(path, engine)
+    for name in ("C1", "CL"):
+        row = next(part for part in found.parts if part.name == name)
+        for share, hz in ((row.share.f_high, found.f_high.exact_hz), (row.share.f_low, found.f_low.exact_hz)):
+            moved = [edge_in_engine(path, {name: factor}, numbers, hz, engine) for factor in (1.005, 0.995)]
+            assert share == pytest.approx(-math.log(moved[0] / moved[1]) / math.log(1.005 / 0.995), abs=0.005)
+
+
+def test_a_change_of_the_transistors_junction_moves_the_edge_by_its_share(engine: Engine) -> None:
+    """CJC scales C_mu and its outer part alike and leaves the operating point alone."""
+    path = FIXTURES / "echo_preamp.cir"
+    numbers = numbers_of(path, engine)
+    assert numbers.circuit is not None
+    assert numbers.edges.f_high is not None
+    assert numbers.edges.f_high.hz is not None
+    model = numbers.circuit.models[0]
+    shares = find_shares(numbers.network, numbers.midband, numbers.edges.f_high.hz, numbers.bands.class_of).parts
+    moved = []
+    for factor in (1.005, 0.995):
+        change = Change(models=((model.name, "cjc", model.parameter("cjc", 0.0) * factor),))
+        moved.append(edge_of_loaded(path, change, numbers, numbers.edges.f_high.hz, engine))
+    measured = -math.log(moved[0] / moved[1]) / math.log(1.005 / 0.995)
+    assert shares["Q1.c_mu"] + shares["Q1.c_bx"] == pytest.approx(measured, abs=0.005)
+
+
+def test_supply_above_60_v_carries_the_caution(tmp_path: Path, engine: Engine) -> None:
+    path = tmp_path / "high.cir"
+    path.write_text(NARROW.replace("VIN in 0 AC 1", "VIN in 0 AC 1\nVHV hv 0 72\nRHV hv 0 1meg"))
+    assert "72 V" in review(path, engine=engine).cautions[0]
+    path.write_text(NARROW.replace("VIN in 0 AC 1", "VIN in 0 AC 1\nVHV hv 0 48\nRHV hv 0 1meg"))
+    assert review(path, engine=engine).cautions == ()
+
+
+def review_of(board: str, engine: Engine) -> Review:
+    return review(FIXTURES / board, engine=engine)
+
+
+def edge_in_engine(path: Path, factors: dict[str, float], numbers: Numbers, near_hz: float, engine: Engine) -> float:
+    """Give the band edge of ngspice with cards scaled, the reference at the unchanged mid-band frequency."""
+    value = {part.name: part.value for part in numbers.network.parts}
+    change = Change(elements=tuple((name, value[name] * factor) for name, factor in factors.items()))
+    return edge_of_loaded(path, change, numbers, near_hz, engine)
+
+
+def edge_of_loaded(path: Path, change: Change, numbers: Numbers, near_hz: float, engine: Engine) -> float:
+    circuit = elaborate(read(path), change)
+    engine.bias(circuit, observations(circuit))
+    reference_hz = numbers.midband.frequency_hz or 1e-6 * near_hz
+    level = abs(engine.sweep([reference_hz]).response[0]) / math.sqrt(2.0)
+    grid = np.geomspace(0.8 * near_hz, 1.25 * near_hz, 9)
+    for _ in range(3):
+        gain = np.abs(engine.sweep(grid).response)
+        k = int(np.flatnonzero((gain[:-1] - level) * (gain[1:] - level) <= 0.0)[0])
+        grid = np.geomspace(grid[k], grid[k + 1], 9)
+    position = math.log(level / gain[k]) / math.log(gain[k + 1] / gain[k])
+    return float(grid[0] * (grid[-1] / grid[0]) ** position)
