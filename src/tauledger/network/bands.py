@@ -56,7 +56,8 @@ def classify(network: Network, midband: MidBand) -> Bands:
 
     A capacitor is short where r = |jω·Z(jω)| / lim s·Z(s) > 0.707, Z being the impedance across it with the capacitor
     itself in place: for one resistance across it r = x/√(1 + x²) with x = ωRC, and capacitors in parallel share one r.
-    The limit is taken in the network of those capacitors that a first round with all of them found short.
+    The limit is taken in the network of those capacitors that a first round with all of them found short; a capacitor
+    that larger shorts bridge by way of a driven source counts for itself, r = |jωC·Z(jω)|.
     An inductor is open where the dual with the admittance of its branch exceeds 0.707. r > 1.3 is resonance: tuned.
     The gain of the merged network is then compared with |H(f_mid)|; while it is more than 2 % off, the open capacitor
     is shorted that halves the error at least.
@@ -170,28 +171,46 @@ def _ratios(network: Network, frequency_hz: float) -> dict[str, float]:
     parts = [part for part in network.parts if part.kind in ("capacitance", "inductance")]
     if frequency_hz == 0.0 or not parts:
         return {part.name: 0.0 for part in parts}
-    fixed = _fixed_by_sources(network)
     terms = reactances(network)
+    value = dict(zip(terms.names, terms.value, strict=True))
     s = 2.0 * np.pi * frequency_hz
-    seen = s * np.abs(_immittance(network, 1j * s, terms))
+    seen = dict(zip(terms.names, s * np.abs(_immittance(network, 1j * s, terms)), strict=True))
     beyond = BEYOND_ALL_POLES * max(float(np.abs(pole_frequencies(network)).max()), s)
-    limit = beyond * np.abs(_immittance(network, beyond, terms))
-
-    def ratios() -> dict[str, float]:
-        return {
-            part.name: 0.0 if part.value == 0.0 or _is_loop(part, fixed) else float(seen[k] / limit[k])
-            for k, part in enumerate(terms.parts)
-            if part.kind != "transcapacitance"
-        }
-
-    first = ratios()
+    first = dict(zip(terms.names, beyond * np.abs(_immittance(network, beyond, terms)), strict=True))
+    fixed = joined_nodes(network, [part for part in network.parts if part.kind == "voltage source"])
+    idle = {part.name for part in parts if part.value == 0.0 or fixed[part.nodes[0]] == fixed[part.nodes[1]]}
+    acting = [part for part in parts if part.name not in idle and seen[part.name] > SHORT_ABOVE * first[part.name]]
+    bridged = _bridged_by_the_drive(network, acting)
     # Beyond all poles a small capacitor is bridged by others that are open at mid-band: they do not stand beside it.
-    acting = {part.name for part in parts if first[part.name] > SHORT_ABOVE}
+    acts = {part.name for part in acting} - bridged
     try:
-        limit = beyond * np.abs(_limited(network, beyond, terms, acting))
+        limit = dict(zip(terms.names, beyond * np.abs(_limited(network, beyond, terms, acts)), strict=True))
     except NetworkError:
-        return first
-    return ratios()
+        limit = first
+    alone = {part.name: seen[part.name] * abs(value[part.name]) for part in parts if part.name in bridged}
+    ratios = {part.name: float(seen[part.name] / limit[part.name]) for part in parts if part.name not in idle}
+    return {part.name: 0.0 for part in parts} | ratios | alone
+
+
+def _bridged_by_the_drive(network: Network, acting: list[Part]) -> set[str]:
+    """Give the capacitors whose ends larger shorts tie to a driven voltage source: shorting them would short it.
+
+    Such a loop of capacitors and a source gives them all one r, though a small one beside a coupling does nothing.
+    """
+    sources = [part for part in network.parts if part.kind == "voltage source"]
+    wires = [part for part in sources if network.amplitude(part) == 0.0]
+    bridged: set[str] = set()
+    for part in sorted(acting, key=lambda part: -part.value):
+        if part.kind != "capacitance":
+            continue
+        with_drive = joined_nodes(network, [*sources, *wires])
+        without_drive = joined_nodes(network, wires)
+        a, b = part.nodes
+        if with_drive[a] == with_drive[b] and without_drive[a] != without_drive[b]:
+            bridged.add(part.name)
+        else:
+            wires.append(part)
+    return bridged
 
 
 def _immittance(network: Network, s: complex, terms: Reactances) -> Complex:
@@ -209,15 +228,6 @@ def _limited(network: Network, s: complex, terms: Reactances, acting: set[str]) 
     kept = replace(network, capacitance=stamped(terms, np.where(acts, terms.value, 0.0)))
     immittance = _immittance(kept, s, terms)
     return np.where(acts, immittance, immittance / (1.0 + s * terms.value * immittance))
-
-
-def _fixed_by_sources(network: Network) -> dict[str, str]:
-    """Give for every node the one that stands for all that voltage sources tie to it."""
-    return joined_nodes(network, [part for part in network.parts if part.kind == "voltage source"])
-
-
-def _is_loop(part: Part, merged: Mapping[str, str]) -> bool:
-    return merged[part.nodes[0]] == merged[part.nodes[1]]
 
 
 def _gain_error(network: Network, midband: MidBand, class_of: Mapping[str, BandClass]) -> float:
