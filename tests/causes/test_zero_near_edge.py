@@ -62,5 +62,18 @@ def test_a_zero_fifty_times_above_is_nothing_of_note() -> None:
     assert "zero-near-edge" not in [cause.cause for cause in find_causes(found)]
 
 
+def test_the_zero_named_is_the_one_nearest_mid_band() -> None:
+    """Gray, Hurst, Lewis and Meyer, sec. 7.3.3: zeros at 477 and 955 MHz. Below: R_E·C_E zeros of two bypassed stages."""
+    above = nearest_zero(evidence(boards.two_common_source_stages()).upper)
+    assert above is not None
+    assert hertz(above) == pytest.approx(477e6, rel=2e-3)
+    edge = evidence(boards.follower_then_common_source_low_edge()).lower
+    assert edge.combined is not None
+    two = replace(edge.combined.roots, zeros=np.array([0.0, -2 * math.pi * 30, -2 * math.pi * 200], dtype=complex))
+    below = nearest_zero(replace(edge, combined=replace(edge.combined, roots=two)))
+    assert below is not None
+    assert hertz(below) == pytest.approx(200.0)
+
+
 def test_levelling_off_is_a_note_and_no_cause() -> None:
     assert zero_near_upper_edge(evidence(boards.emitter_follower())) is None
