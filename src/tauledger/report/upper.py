@@ -107,25 +107,34 @@ def _node_row(node: NodeRow, f_high: float | None) -> Row:
 
 
 def _term_rows(node: NodeRow, working: Working, titles: Mapping[str, str], *, least: float) -> list[Row]:
-    """One row per capacitance that adds at least `least` seconds; what is left of C in one more."""
-    resistance = node.resistance_hand_ohm or 0.0
-    ordered = sorted(working.capacitances, key=lambda term: -abs(term.farad * term.factor))
-    shown = [term for term in ordered if abs(resistance * term.farad * term.factor) >= least][:_TERMS]
-    if not shown:
-        return []
-    rows = [_term_row(term, titles) for term in shown]
-    whole = node.capacitance_f or 0.0
-    rest = whole - sum(term.farad * term.factor for term in shown)
-    if abs(resistance * rest) >= max(least, _MATTERS * abs(resistance * whole)):
-        many = len(ordered) - len(shown)
-        what = f"{_count(many, 'smaller one')}" if many else "not all of them face R"
-        rows.append(Row((f"  {what}", "", number(rest, "F"), "", "", "")))
+    """One row per capacitance that adds at least `least` seconds; what the others add, in one more."""
+    ordered = sorted(working.capacitances, key=lambda term: -abs(_seconds(term, node)))
+    shown = [term for term in ordered if abs(_seconds(term, node)) >= least][:_TERMS]
+    rows = [
+        Row(
+            (
+                f"  {titles.get(term.part, term.part)}{_times(term)}",
+                "",
+                number(term.farad * term.factor, "F"),
+                number(_seconds(term, node), "s"),
+                "",
+                "",
+            )
+        )
+        for term in shown
+    ]
+    rest = (node.time_constant_s or 0.0) - sum(_seconds(term, node) for term in shown)
+    if shown and abs(rest) >= max(least, _MATTERS * abs(node.time_constant_s or 0.0)):
+        others = _count(len(ordered) - len(shown), "smaller one")
+        rows.append(Row((f"  {others}", "", "", number(rest, "s"), "", "")))
     return rows
 
 
-def _term_row(term: CapacitanceTerm, titles: Mapping[str, str]) -> Row:
-    title = titles.get(term.part, term.part)
-    return Row((f"  {title}{_times(term)}", "", number(term.farad * term.factor, "F"), "", "", ""))
+def _seconds(term: CapacitanceTerm, node: NodeRow) -> float:
+    """Give what one capacitance adds to its row, with the resistance that it faces itself."""
+    if term.time_constant_s is not None:
+        return term.time_constant_s
+    return (node.resistance_hand_ohm or 0.0) * term.farad * term.factor
 
 
 def _times(term: CapacitanceTerm) -> str:
