@@ -23,6 +23,8 @@ PortKind = Literal["voltage", "current"]
 
 def fold(name: str) -> str:
     """Give the key under which SPICE compares names: ASCII upper case folded to lower case."""
+    if name.isascii():
+        return name.lower()
     return "".join(chr(ord(c) + 32) if "A" <= c <= "Z" else c for c in name)
 
 

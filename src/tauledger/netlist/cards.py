@@ -16,6 +16,8 @@ if TYPE_CHECKING:
 
     from tauledger.netlist.formulas import Formula
 
+MOST_NESTED = 50
+
 # What may stand where the grammar stops, in words; the key is what was found there.
 _STOPPED = {
     "CLOSE": ("this parenthesis closes nothing", "delete it, or open it before"),
@@ -39,6 +41,9 @@ def parse_card(site: Site) -> tuple[Item, ...]:
     from lark import Token, UnexpectedCharacters, UnexpectedToken
 
     text = site.card.text
+    deep = _depth(text)
+    if deep is not None:
+        raise site.fault(deep, f"parentheses are nested more than {MOST_NESTED} deep")
     try:
         found: Any = _parser().parse(text)
     except UnexpectedCharacters as error:
@@ -68,6 +73,18 @@ def parse_card(site: Site) -> tuple[Item, ...]:
         return parse_formula(site, str(token)[1:-1], at, at + 1)
 
     return tuple(item(raw) for raw in found)
+
+
+def _depth(text: str) -> int | None:
+    """Give the offset of the parenthesis that is one too deep, or None."""
+    if text.count("(") <= MOST_NESTED:
+        return None
+    depth = 0
+    for at, character in enumerate(text):
+        depth += {"(": 1, ")": -1}.get(character, 0)
+        if depth > MOST_NESTED:
+            return at
+    return None
 
 
 def _ended(site: Site, text: str) -> Exception:

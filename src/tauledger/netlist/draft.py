@@ -21,7 +21,8 @@ from tauledger.circuit import (
 from tauledger.errors import InputError
 from tauledger.netlist.diagnostics import nearest, visible
 
-MOST_ELEMENTS = 1_000_000
+MOST_ELEMENTS = 250_000
+MOST_INSTANCES = 20_000
 MOST_NESTED_INSTANCES = 60
 
 

@@ -9,7 +9,7 @@ from tauledger.circuit import GROUND, Element, Instance, ReadingNote, fold
 from tauledger.devices.family import Family
 from tauledger.errors import Diagnostic, InputError, NetlistError
 from tauledger.netlist.diagnostics import MOST_DIAGNOSTICS, Site, nearest, visible
-from tauledger.netlist.draft import MOST_ELEMENTS, MOST_NESTED_INSTANCES, Draft, Row, node_number
+from tauledger.netlist.draft import MOST_ELEMENTS, MOST_INSTANCES, MOST_NESTED_INSTANCES, Draft, Row, node_number
 from tauledger.netlist.elements import (
     Fields,
     InstanceCard,
@@ -243,6 +243,8 @@ def _instance(
         message = f"subcircuit {definition.name} has {len(definition.ports)} nodes, not {len(call.nodes)}"
         raise site.fault(call.subcircuit, message, f"{where}: .subckt {definition.name} {ports}")
     _check_nesting(around, definition, call.subcircuit, site, where)
+    if len(draft.instances) > MOST_INSTANCES:
+        raise site.fault(0, f"the circuit has more than {MOST_INSTANCES} instances of subcircuits")
     path = len(draft.instances)
     draft.instances.append(Instance(name, definition.name, number, definition.card, around.path))
     context = (f"in {visible(name)} ({site.where}), subcircuit {visible(definition.name)} ({where})", *around.context)
