@@ -27,6 +27,7 @@ from tauledger.hand.steps import lower_steps, upper_steps
 from tauledger.network.constants import OpenConstants, open_constants
 from tauledger.network.edges import Edge
 from tauledger.network.identities import (
+    Identity,
     check,
     open_identities,
     response_identities,
@@ -124,7 +125,9 @@ def _shares(numbers: Numbers, edge: Edge | None) -> Shares | None:
     if edge is None or edge.hz is None:
         return None
     shares = find_shares(numbers.network, numbers.midband, edge.hz, numbers.bands.class_of)
-    check(share_identities(shares))
+    # the edge's slope was reached by another solution than the shares'
+    same_slope = Identity("slope by the shares = slope at the edge", shares.slope, edge.slope or 0.0, 1e-9, 1.0)
+    check((*share_identities(shares), same_slope))
     return shares
 
 
