@@ -19,7 +19,7 @@ from circuits import board, preamp
 from tauledger.circuit import Port
 from tauledger.devices.catalogue import observations
 from tauledger.engine import deck
-from tauledger.engine.client import Engine, start_engine
+from tauledger.engine.client import PACKAGE_ROOT, Engine, start_engine
 from tauledger.engine.grid import decades
 from tauledger.errors import EngineError, EngineMissing, EngineTimeout
 from tauledger.solution import Observation
@@ -109,15 +109,17 @@ def test_a_worker_does_not_grow_with_the_circuits_it_solves(engine: Engine) -> N
     circuit = preamp()
     grid = decades(10.0, 1e8, 20)
 
-    def solve(times: int) -> None:
+    def solve(times: int, *, swept: bool) -> int:
+        before = resident_kb()
         for _ in range(times):
             engine.bias(circuit, observations(circuit))
-            engine.sweep(grid)
+            if swept:
+                engine.sweep(grid)
+        return resident_kb() - before
 
-    solve(20)
-    before = resident_kb()
-    solve(150)
-    assert resident_kb() - before < 150 * 20
+    solve(20, swept=True)
+    assert solve(150, swept=True) < 150 * 20
+    assert solve(300, swept=False) < 300 * 10
 
 
 def test_a_floating_node_is_named_and_not_given_a_voltage(engine: Engine) -> None:
@@ -227,7 +229,7 @@ engine.sweep([1.0 + k for k in range(2_000_000)])
 
 
 def test_a_busy_worker_ends_when_its_parent_is_killed(private_tmp: Path) -> None:
-    environment = {**os.environ, "PYTHONPATH": str(Path(__file__).parents[1])}
+    environment = {**os.environ, "PYTHONPATH": os.pathsep.join((str(Path(__file__).parents[1]), str(PACKAGE_ROOT)))}
     parent = subprocess.Popen(
         [sys.executable, "-c", ORPHAN, str(private_tmp)], stdout=subprocess.PIPE, text=True, env=environment
     )
@@ -281,6 +283,14 @@ def test_no_start_up_file_of_the_user_is_run(tmp_path: Path, monkeypatch: pytest
     with start_engine() as engine:
         assert engine.bias(DIVIDER, ()).voltages[2] == pytest.approx(4.0)
     assert not (trap / "sprung").exists()
+
+
+def test_no_code_model_of_the_system_is_loaded(engine: Engine) -> None:
+    """The system's own `spinit` would load them; the private one is read instead."""
+    engine.bias(DIVIDER, ())
+    mapped = Path(f"/proc/{engine.pid}/maps").read_text()
+    assert "libngspice" in mapped
+    assert ".cm\n" not in mapped
 
 
 def test_hostile_names_run_nothing(tmp_path: Path, engine: Engine) -> None:
