@@ -6,6 +6,7 @@ import math
 
 from tauledger.explain import Explanation
 from tauledger.hand.estimate import InnerLine, SignalNode
+from tauledger.hand.halves import counted
 from tauledger.network.constants import OpenConstant
 from tauledger.network.lower import ShortConstant
 from tauledger.network.recompute import EdgeFrequencies
@@ -77,7 +78,7 @@ def budget_facts(explanation: Explanation) -> Budget:
     """Give the sums of both ledgers, None where the hand side is withheld."""
     upper = lower = None
     if explanation.open is not None and explanation.hand is not None:
-        path = [node.time_constant_s for node in explanation.hand.nodes if node.in_path]
+        path = [node.time_constant_s for node in counted(explanation.hand.nodes).rows]
         upper = UpperBudget(
             explanation.open.sum_s,
             explanation.open.inverse_pole_sum_s,
