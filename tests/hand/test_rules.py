@@ -9,7 +9,7 @@ import pytest
 
 from cells import circuit_of, near
 from tauledger.devices.parts import Part, resistance, transconductance
-from tauledger.hand.equivalent import Cell
+from tauledger.hand.elements import Cell
 from tauledger.hand.rules import RULES, Outside
 from tauledger.hand.rules.bipolar import BASE, COLLECTOR, EMITTER
 from tauledger.hand.rules.field_effect import DRAIN, GATE, SOURCE

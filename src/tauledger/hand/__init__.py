@@ -1,8 +1,8 @@
 """The hand side: what an engineer writes on paper, worked, with the exact value beside every line.
 
-equivalent.py draws the mid-band circuit (joined nodes, resistors, cells); rules/ has the looking-in rules,
-looking_in.py applies them and checks each against the exact resistance; miller.py splits the capacitances; nodes.py and
-roles.py name things and test the path; budget.py, lower.py and stages.py make the rows. From the rows come the steps
-from paper to the full network, the classical methods and the hand poles. estimate.py has the records. Nothing here
-imports netlist or engine.
+equivalent.py draws the mid-band circuit out of elements.py (resistors, cells). rules/ has the looking-in rules,
+branches.py applies them, looking_in.py checks each result against the exact resistance. miller.py splits the
+capacitances; nodes.py and roles.py name things and test the path; budget.py, lower.py and stages.py make the rows.
+From the rows come the steps from paper to the full network, the classical methods and the hand poles. estimate.py has
+the records. Nothing here imports netlist or engine.
 """

@@ -10,7 +10,8 @@ from collections.abc import Mapping
 
 from tauledger.circuit import GROUND
 from tauledger.devices.family import Device
-from tauledger.hand.equivalent import Capacitor, EquivalentCircuit, upper_circuit
+from tauledger.hand.elements import Capacitor
+from tauledger.hand.equivalent import EquivalentCircuit, upper_circuit
 from tauledger.hand.estimate import InnerLine, LookingIn, Resistance, SignalNode, WorkingSource
 from tauledger.hand.figures import plain
 from tauledger.hand.looking_in import looking_in

@@ -8,7 +8,7 @@ r_pi and r_o), and the impedance matrix against which every hand rule is checked
 from __future__ import annotations
 
 import math
-from collections.abc import Collection, Iterable, Mapping
+from collections.abc import Collection, Mapping
 from dataclasses import dataclass, field, replace
 
 import numpy as np
@@ -18,82 +18,17 @@ from tauledger.circuit import GROUND
 from tauledger.devices.family import Device
 from tauledger.devices.parts import Part
 from tauledger.errors import NetworkError
+from tauledger.hand.elements import Capacitor as Capacitor
+from tauledger.hand.elements import (
+    Cell,
+    Resistor,
+    TerminalAt,
+    read_cells,
+    read_resistors,
+    read_terminals,
+)
 from tauledger.network.assemble import Network
 from tauledger.network.bands import Bands
-
-INTERNAL = ("g_pi", "g_o", "g_mu")
-WITHOUT_SIGNAL = ("substrate", "body")
-LONE_WORDS = ("input", "common terminal", "output")
-
-
-@dataclass(frozen=True, slots=True)
-class Resistor:
-    """One resistor between two hand nodes, ohm; parallel ones between live nodes are taken together."""
-
-    name: str
-    a: str
-    b: str
-    ohm: float
-
-    def other(self, node: str) -> str:
-        """Give the end that is not `node`."""
-        return self.b if node == self.a else self.a
-
-
-@dataclass(frozen=True, slots=True)
-class Cell:
-    """One transconductor between hand nodes: gm·v(control, common) flows from output to common.
-
-    gm, g_mb in S; r_pi, r_o in ohm, infinite where there is none. body: node of the second control, or None.
-    words: what the trade calls control, common and output ("base", "emitter", "collector").
-    """
-
-    owner: str
-    control: str
-    common: str
-    output: str
-    gm: float
-    r_pi: float = math.inf
-    r_o: float = math.inf
-    body: str | None = None
-    g_mb: float = 0.0
-    words: tuple[str, str, str] = LONE_WORDS
-
-    @property
-    def beta(self) -> float:
-        """Current gain gm·r_pi; infinite without r_pi."""
-        return self.gm * self.r_pi
-
-    @property
-    def body_gm(self) -> float:
-        """The g_mb that a hand rule knows: that of a body at AC ground."""
-        return self.g_mb if self.body == GROUND else 0.0
-
-    @property
-    def diode_connected(self) -> bool:
-        """Whether the control is its own output."""
-        return self.control == self.output
-
-
-@dataclass(frozen=True, slots=True)
-class Capacitor:
-    """One open capacitance between hand nodes; `part` is its name, farad its value."""
-
-    part: str
-    a: str
-    b: str
-    farad: float
-
-
-@dataclass(frozen=True, slots=True)
-class TerminalAt:
-    """A device terminal in the hand circuit: its word, and the hand nodes of its outer and inner end."""
-
-    owner: str
-    word: str
-    outer: str
-    inner: str
-    netlist_node: str
 
 
 @dataclass(frozen=True, slots=True)
@@ -217,8 +152,8 @@ def equivalent_circuit(
     members: dict[str, list[str]] = {}
     for node, h in at.items():
         members.setdefault(h, []).append(node)
-    cells, used = _cells(network, hand, at, devices)
-    resistors = _resistors(network, hand, used)
+    cells, used = read_cells(network, hand, at, devices)
+    resistors = read_resistors(network, hand, used)
     return EquivalentCircuit(
         at=at,
         driven=frozenset(node for node, upper in merged.items() if upper in moved),
@@ -231,7 +166,7 @@ def equivalent_circuit(
             for part in network.parts
             if part.kind == "capacitance"
         ),
-        terminals=_terminals(at, devices, cells, whole),
+        terminals=read_terminals(at, devices, cells, whole),
         inner_names=frozenset(t.inner for device in devices for t in device.terminals if t.inner != t.outer),
         output_nodes=(whole.port.plus, whole.port.minus) if whole.port.kind == "voltage" else (),
         impedance=solved.impedance,
@@ -298,152 +233,6 @@ def _solve(network: Network, hand: Mapping[str, str], nodes: tuple[str, ...]) ->
         moment=moment,
         floating=frozenset(hand[network.unknowns[k]] for k in lonely),
     )
-
-
-def _cells(
-    network: Network, hand: Mapping[str, str], at: Mapping[str, str], devices: tuple[Device, ...]
-) -> tuple[tuple[Cell, ...], set[str]]:
-    """Give all cells, and the names of the conductances that are inside them."""
-    cells: list[Cell] = []
-    used: set[str] = set()
-    with_words = {device.name: device for device in devices if device.cell is not None and device.terminals}
-    for device in with_words.values():
-        cell = device.cell
-        assert cell is not None
-        word = {terminal.inner: terminal.word for terminal in device.terminals if terminal.word not in WITHOUT_SIGNAL}
-        control, common, output = (at.get(node, GROUND) for node in (cell.control, cell.common, cell.output))
-        cells.append(
-            Cell(
-                owner=cell.owner,
-                control=control,
-                common=common,
-                output=output,
-                gm=cell.gm,
-                r_pi=math.inf if cell.r_pi is None else cell.r_pi,
-                r_o=math.inf if cell.r_o is None else cell.r_o,
-                body=None if cell.body is None else at.get(cell.body, GROUND),
-                g_mb=cell.g_mb,
-                words=(
-                    word.get(cell.control, "control"),
-                    word.get(cell.common, "common"),
-                    word.get(cell.output, "output"),
-                ),
-            )
-        )
-        used.update(part.name for part in device.parts if part.kind == "conductance" and part.label in INTERNAL)
-    lone: list[Cell] = []
-    for part in network.parts:
-        if part.kind == "transconductance" and part.owner not in with_words:
-            found = _lone_cell(part, tuple(hand[node] for node in part.nodes))
-            if found is not None:
-                lone.append(found)
-    for found in _with_body(lone):
-        inside = [part for part in network.parts if part.kind == "conductance" and part.name not in used]
-        r_pi = [part for part in inside if _inside(part, found, found.control, "g_pi", hand)]
-        r_o = [part for part in inside if _inside(part, found, found.output, "g_o", hand) and part not in r_pi]
-        used.update(part.name for part in (*r_pi, *r_o))
-        cells.append(replace(found, r_pi=_parallel_ohm(r_pi), r_o=_parallel_ohm(r_o)))
-    return tuple(cells), used
-
-
-def _lone_cell(part: Part, nodes: tuple[str, ...]) -> Cell | None:
-    """Read a controlled source as a cell where its control shares a node with its output; the sign stays with gm."""
-    out_plus, out_minus, control_plus, control_minus = nodes
-    if out_plus == out_minus or control_plus == control_minus:
-        return None
-    if (out_plus, out_minus) == (control_plus, control_minus):
-        return Cell(part.owner, out_plus, out_minus, out_plus, part.value)
-    if (out_minus, out_plus) == (control_plus, control_minus):
-        return Cell(part.owner, out_plus, out_minus, out_plus, -part.value)
-    for output, common, out_sign in ((out_plus, out_minus, 1.0), (out_minus, out_plus, -1.0)):
-        if control_minus == common:
-            return Cell(part.owner, control_plus, common, output, out_sign * part.value)
-        if control_plus == common:
-            return Cell(part.owner, control_minus, common, output, -out_sign * part.value)
-    return None
-
-
-def _with_body(cells: list[Cell]) -> list[Cell]:
-    """Take a source between the same two nodes that is controlled from AC ground as the body effect of the first."""
-    kept: list[Cell] = []
-    for cell in sorted(cells, key=lambda cell: cell.control == GROUND):
-        ends = (cell.output, cell.common)
-        hosts = [k for k, o in enumerate(kept) if (o.output, o.common) == ends and o.body is None]
-        host = hosts[0] if hosts and cell.control == GROUND else None
-        if host is None:
-            kept.append(cell)
-        else:
-            kept[host] = replace(kept[host], body=GROUND, g_mb=cell.gm)
-    return kept
-
-
-def _inside(part: Part, cell: Cell, terminal: str, label: str, hand: Mapping[str, str]) -> bool:
-    """Say whether a conductance is the cell's own: by owner and label, or because it spans two live nodes of it.
-
-    A resistor from the control to ground is the source network and no r_pi, so ground on either side excludes it.
-    """
-    if part.owner == cell.owner:
-        return part.label == label
-    live = GROUND not in (cell.common, terminal) and not cell.diode_connected
-    return live and not part.label and {hand[node] for node in part.nodes} == {cell.common, terminal}
-
-
-def _resistors(network: Network, hand: Mapping[str, str], used: set[str]) -> tuple[Resistor, ...]:
-    grouped: dict[tuple[str, str], list[tuple[str, float]]] = {}
-    resistors: list[Resistor] = []
-    for part in network.parts:
-        if part.kind != "conductance" or part.name in used or part.value == 0.0:
-            continue
-        a, b = sorted(hand[node] for node in part.nodes)
-        if a == b:
-            continue
-        if GROUND in (a, b):
-            resistors.append(Resistor(_resistor_name(part), a, b, 1.0 / part.value))
-        else:
-            grouped.setdefault((a, b), []).append((_resistor_name(part), part.value))
-    for (a, b), together in grouped.items():
-        name = " ‖ ".join(name for name, _ in together)
-        resistors.append(
-            Resistor(name if len(together) == 1 else f"({name})", a, b, 1.0 / sum(value for _, value in together))
-        )
-    return tuple(resistors)
-
-
-def _resistor_name(part: Part) -> str:
-    if not part.label:
-        return part.owner
-    label = "r_" + part.label.removeprefix("g_") if part.label.startswith("g_") else part.label
-    return f"{label.replace('r_pi', 'r_π')}({part.owner})"
-
-
-def _terminals(
-    at: Mapping[str, str], devices: tuple[Device, ...], cells: tuple[Cell, ...], whole: Network
-) -> tuple[TerminalAt, ...]:
-    found = [
-        TerminalAt(device.name, t.word, at.get(t.outer, GROUND), at.get(t.inner, GROUND), t.outer)
-        for device in devices
-        for t in device.terminals
-        if t.word not in WITHOUT_SIGNAL
-    ]
-    named = {terminal.owner for terminal in found}
-    card: dict[str, tuple[str, ...]] = {}
-    for part in whole.parts:
-        if part.kind == "transconductance":
-            card.setdefault(part.owner, part.nodes)
-    for cell in cells:
-        if cell.owner in named:
-            continue
-        out, control = card[cell.owner][:2], card[cell.owner][2:]
-        ends = (cell.control, cell.common, cell.output)
-        for word, node, nodes in zip(cell.words, ends, (control, out, out), strict=True):
-            name = next(name for name in nodes if at[name] == node)
-            found.append(TerminalAt(cell.owner, word, node, node, name))
-    return tuple(found)
-
-
-def _parallel_ohm(parts: Iterable[Part]) -> float:
-    total = sum(part.value for part in parts)
-    return 1.0 / total if total else math.inf
 
 
 def _adjacency(ends: list[tuple[str, ...]]) -> dict[str, tuple[int, ...]]:

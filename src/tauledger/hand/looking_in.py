@@ -1,78 +1,26 @@
-"""The resistance that a node sees, as worked on paper: parallel branches, each by a looking-in rule, checked exactly.
+"""The resistance that a node sees, as worked on paper, checked against the exact value and marked with its source.
 
-A branch ends at AC ground, at a supply or at a driven node. On a tree of cells the rules are exact; where a path leads
-back to a node already visited, that node counts as open and the result is accepted only within 1 % of the exact
-driving-point resistance. Where it is not, one loop is taken out (R0/(1 + T)), then the branch form with the exact node
-ratios is tried, and what is left is marked as solved.
+On a tree of cells the rules are exact. Elsewhere the result is accepted only within 1 % of the exact driving-point
+resistance; where it is not, one loop is taken out (R0/(1 + T)), then the branch form with the exact node ratios is
+tried, and what is left is marked as solved.
 """
 
 from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass, field, replace
+from dataclasses import replace
 
 import numpy as np
 
 from tauledger.circuit import GROUND
-from tauledger.hand.equivalent import Cell, EquivalentCircuit
+from tauledger.hand.branches import Branch, Walk, branches, carrying, close, total
+from tauledger.hand.equivalent import EquivalentCircuit
 from tauledger.hand.estimate import LookingIn, Resistance
-from tauledger.hand.figures import compact, plain
-from tauledger.hand.rules import Outside, Rule
-from tauledger.hand.rules.bipolar import BASE, COLLECTOR, EMITTER
-from tauledger.hand.rules.field_effect import DRAIN, SOURCE
-from tauledger.hand.rules.two_terminal import (
-    CONTROL_ON_COMMON,
-    DIODE_BOTTOM,
-    DIODE_TOP,
-    OUTPUT_ON_COMMON,
-    diode_siemens,
-    diode_through_resistance_ohm,
-)
+from tauledger.hand.figures import plain
 
 ACCEPTED = 0.01
 LOOP_ACCEPTED = 0.005
-SHORT_FORM = 0.005
-NOT_PRINTED = 0.001
-VISIT_BUDGET = 500
-PRINTED_DEPTH = 2
-
-Element = tuple[str, int]
-
-
-@dataclass(frozen=True, slots=True)
-class Seen:
-    """A resistance in ohm and how it is written; `terms` of it stand in parallel or series without brackets."""
-
-    ohm: float
-    symbol: str
-    terms: int = 1
-
-
-@dataclass(frozen=True, slots=True)
-class Branch:
-    """One of the branches in parallel at a node.
-
-    ohm: its resistance to AC ground. symbol: how it is written. detail: the working of a cell's rule, or empty.
-    far, link_ohm: where it leads and through what resistance, if it is passive at this end; link_ohm None if not.
-    """
-
-    name: str
-    ohm: float
-    symbol: str
-    detail: str = ""
-    far: str = GROUND
-    link_ohm: float | None = None
-
-
-@dataclass(slots=True)
-class Walk:
-    """One look into a circuit: nodes that end a branch, the cell whose gm is taken as 0, and visits left."""
-
-    ends: frozenset[str] = frozenset({GROUND})
-    muted: int | None = None
-    left: int = VISIT_BUDGET
-    path: list[str] = field(default_factory=list)
 
 
 def looking_in(circuit: EquivalentCircuit, node: str, label: str) -> LookingIn:
@@ -84,9 +32,9 @@ def looking_in(circuit: EquivalentCircuit, node: str, label: str) -> LookingIn:
     exact = circuit.z(node, node)
     walk = Walk()
     found = branches(circuit, node, frozenset(), walk)
-    rule_ohm = _total(found)
+    rule_ohm = total(found)
     spent = walk.left < 0
-    if not spent and _close(rule_ohm, exact, ACCEPTED):
+    if not spent and close(rule_ohm, exact, ACCEPTED):
         return LookingIn(rule_ohm, "looking in", _line(f"R({label})", found, rule_ohm), _resistances(found), "rule")
     loop = None if spent else _one_loop(circuit, node, label, rule_ohm, exact)
     if loop is not None:
@@ -100,97 +48,6 @@ def looking_in(circuit: EquivalentCircuit, node: str, label: str) -> LookingIn:
         "solved",
         rule_ohm=None if spent else rule_ohm,
     )
-
-
-def outside(circuit: EquivalentCircuit, node: str, without: frozenset[Element], walk: Walk) -> Seen:
-    """Give the resistance from a node to AC ground with some elements taken out: 0 at an end, infinite if open."""
-    if node in walk.ends:
-        return Seen(0.0, "0")
-    if node in walk.path:
-        return Seen(math.inf, "∞")
-    walk.left -= 1
-    if walk.left < 0:
-        return Seen(math.inf, "∞")
-    found = branches(circuit, node, without, walk)
-    ohm = _total(found)
-    shown = _shown(found)
-    if len(walk.path) >= PRINTED_DEPTH or len(shown) > 4 or not shown:
-        return Seen(ohm, plain(ohm))
-    return Seen(ohm, " ‖ ".join(branch.symbol for branch in shown), len(shown))
-
-
-def branches(circuit: EquivalentCircuit, node: str, without: frozenset[Element], walk: Walk) -> list[Branch]:
-    """List the finite branches at a node, elements in `without` taken out."""
-    walk.path.append(node)
-    found: list[Branch] = []
-    skipped = set(without)
-    for k in _cells_near(circuit, node):
-        joint = diode_joint(circuit, k)
-        if ("Q", k) in skipped:
-            continue
-        branch: Branch | None = None
-        if joint is not None and node in (joint.node, circuit.cells[k].common):
-            if node == joint.node:
-                skipped |= joint.elements
-            branch = _diode_through(circuit, node, k, joint, walk)
-        elif k in circuit.cells_at.get(node, ()):
-            branch = _cell_branch(circuit, node, k, walk)
-        if branch is not None and not math.isinf(branch.ohm):
-            found.append(branch)
-    passive: list[Branch] = []
-    for k in circuit.resistors_at.get(node, ()):
-        if ("R", k) in skipped:
-            continue
-        resistor = circuit.resistors[k]
-        far = resistor.other(node)
-        beyond = outside(circuit, far, frozenset({("R", k)}), walk)
-        if math.isinf(beyond.ohm):
-            continue
-        symbol = resistor.name
-        if beyond.ohm:
-            symbol = f"({symbol} + {beyond.symbol})" if beyond.terms == 1 else f"({symbol} + ({beyond.symbol}))"
-        passive.append(Branch(resistor.name, resistor.ohm + beyond.ohm, symbol, "", far, resistor.ohm))
-    walk.path.pop()
-    return [*passive, *found]
-
-
-@dataclass(frozen=True, slots=True)
-class Joint:
-    """Where a transistor's control and output meet outside its series resistances r_b and r_c, ohm."""
-
-    node: str
-    r_b: float
-    r_c: float
-    elements: frozenset[Element]
-
-
-def diode_joint(circuit: EquivalentCircuit, k: int) -> Joint | None:
-    """Give the node at which cell k is diode-connected outside its series resistances, or None."""
-    cell = circuit.cells[k]
-    base = _only_resistor(circuit, cell.control, k)
-    if base is None or cell.diode_connected:
-        return None
-    node = circuit.resistors[base].other(cell.control)
-    elements: set[Element] = {("Q", k), ("R", base)}
-    r_c = 0.0
-    if node != cell.output:
-        collector = _only_resistor(circuit, cell.output, k)
-        if collector is None or circuit.resistors[collector].other(cell.output) != node:
-            return None
-        elements.add(("R", collector))
-        r_c = circuit.resistors[collector].ohm
-    if node in (GROUND, cell.common):
-        return None
-    return Joint(node, circuit.resistors[base].ohm, r_c, frozenset(elements))
-
-
-def _cells_near(circuit: EquivalentCircuit, node: str) -> list[int]:
-    """List the cells at a node, and those whose control hangs on it behind one resistor alone."""
-    near = list(circuit.cells_at.get(node, ()))
-    for r in circuit.resistors_at.get(node, ()):
-        far = circuit.resistors[r].other(node)
-        near += [k for k in circuit.cells_at.get(far, ()) if circuit.cells[k].control == far and k not in near]
-    return near
 
 
 def loop_resistance(circuit: EquivalentCircuit, node: str, k: int) -> float:
@@ -221,8 +78,8 @@ def _one_loop(circuit: EquivalentCircuit, node: str, label: str, rule_ohm: float
     for k, cell in enumerate(circuit.cells):
         walk = Walk(muted=k)
         found = branches(circuit, node, frozenset(), walk)
-        r0 = _total(found)
-        if walk.left < 0 or not cell.gm or not _close(r0, loop_resistance(circuit, node, k), LOOP_ACCEPTED):
+        r0 = total(found)
+        if walk.left < 0 or not cell.gm or not close(r0, loop_resistance(circuit, node, k), LOOP_ACCEPTED):
             continue
         change = abs(r0 - rule_ohm)
         if best is None or change < best[0]:
@@ -252,7 +109,7 @@ def _branch_form(
         cell = circuit.cells[k]
         if not math.isinf(cell.r_pi):
             links.append(_link(circuit, node, f"r_π({cell.owner})", cell.common, cell.r_pi))
-    if not links or any(link.ohm <= 0.0 for link in links) or not _close(_total(links), exact, ACCEPTED):
+    if not links or any(link.ohm <= 0.0 for link in links) or not close(total(links), exact, ACCEPTED):
         return None
     text = _line(f"R({label})", links, exact) + "; each branch divided by 1 − K of its far end"
     return LookingIn(exact, "branches with the solved ratios", text, _resistances(links), "branch", rule_ohm=rule_ohm)
@@ -264,136 +121,8 @@ def _link(circuit: EquivalentCircuit, node: str, name: str, far: str, ohm: float
     return Branch(name, value, name if rest == 1.0 else f"{name}/{plain(rest)}")
 
 
-def _cell_branch(circuit: EquivalentCircuit, node: str, k: int, walk: Walk) -> Branch | None:
-    """Choose the rule for one cell at one of its nodes, and find what its other terminals see without it."""
-    cell = _unmuted(circuit, k, walk)
-    without = frozenset({("Q", k)})
-
-    def seen(at: str) -> Seen:
-        return outside(circuit, at, without, walk)
-
-    is_control, is_common, is_output = (node == end for end in (cell.control, cell.common, cell.output))
-    if is_control and is_common and is_output:
-        return None
-    if is_control and is_output:
-        beyond = seen(cell.common)
-        link = 1.0 / diode_siemens(cell) if cell.body_gm == 0.0 and diode_siemens(cell) > 0.0 else None
-        return _by_rule(DIODE_TOP, cell, f"diode-connected {cell.owner}", {"R_S": beyond}, cell.common, link)
-    if is_control and is_common:
-        return _series(CONTROL_ON_COMMON, cell, f"r_o({cell.owner})", cell.r_o, seen(cell.output), cell.output)
-    if is_common and is_output:
-        return _series(OUTPUT_ON_COMMON, cell, f"r_π({cell.owner})", cell.r_pi, seen(cell.control), cell.control)
-    if is_control:
-        if math.isinf(cell.r_pi):
-            return None
-        if cell.output == cell.common:
-            return _series(OUTPUT_ON_COMMON, cell, f"r_π({cell.owner})", cell.r_pi, seen(cell.common), cell.common)
-        r_e = seen(cell.common)
-        if r_e.ohm == 0.0:
-            return Branch(f"r_π({cell.owner})", cell.r_pi, f"r_π({cell.owner})", "", cell.common, cell.r_pi)
-        r_c = Seen(0.0, "0") if math.isinf(cell.r_o) else seen(cell.output)
-        return _by_rule(BASE, cell, _into(cell, 0), {"R_E": r_e, "R_C": r_c}, cell.common, cell.r_pi)
-    if is_common:
-        if cell.diode_connected:
-            return _by_rule(DIODE_BOTTOM, cell, f"diode-connected {cell.owner}", {"R_D": seen(cell.control)})
-        r_c = Seen(0.0, "0") if math.isinf(cell.r_o) else seen(cell.output)
-        if math.isinf(cell.r_pi):
-            return _by_rule(SOURCE, cell, _into(cell, 1), {"R_D": r_c})
-        return _by_rule(EMITTER, cell, _into(cell, 1), {"R_B": seen(cell.control), "R_C": r_c})
-    if math.isinf(cell.r_o):
-        return None
-    if cell.control == cell.common:
-        return _series(CONTROL_ON_COMMON, cell, f"r_o({cell.owner})", cell.r_o, seen(cell.common), cell.common)
-    r_e = seen(cell.common)
-    if r_e.ohm == 0.0:
-        return Branch(f"r_o({cell.owner})", cell.r_o, f"r_o({cell.owner})")
-    if math.isinf(cell.r_pi):
-        return _by_rule(DRAIN, cell, _into(cell, 2), {"R_S": r_e})
-    return _by_rule(COLLECTOR, cell, _into(cell, 2), {"R_E": r_e, "R_B": seen(cell.control)})
-
-
-def _diode_through(circuit: EquivalentCircuit, node: str, k: int, joint: Joint, walk: Walk) -> Branch:
-    """Take a transistor diode-connected outside its r_b (and r_c) as one two-terminal part."""
-    cell = _unmuted(circuit, k, walk)
-    ohm = diode_through_resistance_ohm(cell, joint.r_b, joint.r_c)
-    far = cell.common if node == joint.node else joint.node
-    beyond = outside(circuit, far, joint.elements, walk)
-    name = f"diode-connected {cell.owner}"
-    symbol = name if beyond.ohm == 0.0 else f"({name} + {beyond.symbol})"
-    given = f"r_π = {plain(cell.r_pi)}, r_b = {plain(joint.r_b)}, β = {plain(cell.beta)}"
-    detail = f"{name}: [(r_π + r_b)/(β + 1)] ‖ r_o ≈ {plain(ohm)} with {given}"
-    return Branch(name, ohm + beyond.ohm, symbol, detail, far, ohm)
-
-
-def _only_resistor(circuit: EquivalentCircuit, node: str, k: int) -> int | None:
-    """Give the one resistor at a node at which there is nothing else than cell k."""
-    if node == GROUND or circuit.cells_at.get(node) != (k,):
-        return None
-    resistors = circuit.resistors_at.get(node, ())
-    return resistors[0] if len(resistors) == 1 else None
-
-
-def _unmuted(circuit: EquivalentCircuit, k: int, walk: Walk) -> Cell:
-    cell = circuit.cells[k]
-    return replace(cell, gm=0.0, g_mb=0.0) if walk.muted == k else cell
-
-
-def _into(cell: Cell, terminal: int) -> str:
-    return f"into {cell.words[terminal]} of {cell.owner}"
-
-
-def _series(rule: Rule, cell: Cell, symbol: str, ohm: float, beyond: Seen, far: str) -> Branch | None:
-    if math.isinf(ohm):
-        return None
-    text = symbol if beyond.ohm == 0.0 else f"({symbol} + {beyond.symbol})"
-    return Branch(f"{rule.name} {cell.owner}", ohm + beyond.ohm, text, "", far, ohm)
-
-
-def _by_rule(
-    rule: Rule, cell: Cell, name: str, seen: dict[str, Seen], far: str = GROUND, link_ohm: float | None = None
-) -> Branch:
-    around = Outside(control=_ohm(seen, "R_B"), common=_ohm(seen, "R_E", "R_S"), output=_ohm(seen, "R_C", "R_D"))
-    ohm = rule.ohm(cell, around)
-    formula, equals = rule.formula, "="
-    if rule.short_ohm is not None and _close(rule.short_ohm(cell, around), ohm, SHORT_FORM):
-        formula, equals = rule.short, "=" if _close(rule.short_ohm(cell, around), ohm, 1e-9) else "≈"
-    if cell.body_gm == 0.0:
-        formula = formula.replace("(gm + g_mb)", "gm").replace("(1 + g_mb·R_S)/g", "1/g").replace("(g + g_mb)", "g")
-    own = {"r_π": cell.r_pi, "r_o": cell.r_o, "β": cell.beta, "gm": cell.gm, "g_mb": cell.body_gm}
-    shown: list[str] = []
-    for symbol in rule.operands:
-        if symbol not in formula:
-            continue
-        if symbol in seen:
-            value = plain(seen[symbol].ohm)
-            written = seen[symbol].symbol
-            shown.append(f"{symbol} = {value}" if written in (value, "0", "∞") else f"{symbol} = {written} = {value}")
-        else:
-            write = compact if symbol in ("gm", "g_mb") else plain
-            shown.append(f"{symbol} = {write(own.get(symbol, 0.0))}")
-    given = f" with {', '.join(shown)}" if shown else ""
-    return Branch(name, ohm, name, f"{name}: {formula} {equals} {plain(ohm)}{given}", far, link_ohm)
-
-
-def _ohm(seen: dict[str, Seen], *symbols: str) -> float:
-    return next((seen[symbol].ohm for symbol in symbols if symbol in seen), 0.0)
-
-
-def _total(found: Sequence[Branch]) -> float:
-    if any(branch.ohm == 0.0 for branch in found):
-        return 0.0
-    siemens = sum(1.0 / branch.ohm for branch in found)
-    return 1.0 / siemens if siemens else math.inf
-
-
-def _shown(found: Sequence[Branch]) -> list[Branch]:
-    """Leave out what carries less than 0.1 % of the conductance."""
-    total = _total(found)
-    return [branch for branch in found if abs(total) >= NOT_PRINTED * abs(branch.ohm)]
-
-
 def _line(head: str, found: Sequence[Branch], ohm: float) -> str:
-    shown = _shown(found)
+    shown = carrying(found)
     if not shown:
         return f"{head} = {plain(ohm)}"
     symbols = " ‖ ".join(branch.symbol for branch in shown)
@@ -403,14 +132,8 @@ def _line(head: str, found: Sequence[Branch], ohm: float) -> str:
 
 
 def _resistances(found: Sequence[Branch]) -> tuple[Resistance, ...]:
-    return tuple(Resistance(branch.symbol, branch.ohm) for branch in _shown(found))
+    return tuple(Resistance(branch.symbol, branch.ohm) for branch in carrying(found))
 
 
 def _one_plus(t: float) -> str:
     return f"(1 + {plain(t)})" if t >= 0.0 else f"(1 − {plain(-t)})"
-
-
-def _close(value: float, exact: float, tolerance: float) -> bool:
-    if math.isinf(value) or math.isinf(exact):
-        return value == exact
-    return abs(value - exact) <= tolerance * abs(exact)

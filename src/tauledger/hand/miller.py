@@ -17,10 +17,11 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from tauledger.circuit import GROUND
-from tauledger.hand.equivalent import Capacitor, Cell, EquivalentCircuit
+from tauledger.hand.branches import Element, Seen, Walk, outside
+from tauledger.hand.elements import Capacitor, Cell
+from tauledger.hand.equivalent import EquivalentCircuit
 from tauledger.hand.estimate import MillerTerm, WorkingSource
 from tauledger.hand.figures import compact, plain
-from tauledger.hand.looking_in import Element, Seen, Walk, outside
 from tauledger.hand.rules.rule import parallel
 
 ACCEPTED = 0.01

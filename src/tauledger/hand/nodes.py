@@ -6,7 +6,8 @@ from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
 
 from tauledger.circuit import GROUND
-from tauledger.hand.equivalent import EquivalentCircuit, TerminalAt
+from tauledger.hand.elements import TerminalAt
+from tauledger.hand.equivalent import EquivalentCircuit
 
 CROSSING_IN_PATH = 0.05
 MOMENT_IN_PATH = 0.02

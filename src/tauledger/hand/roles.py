@@ -3,8 +3,9 @@
 from __future__ import annotations
 
 from tauledger.circuit import GROUND
-from tauledger.hand.equivalent import Cell, EquivalentCircuit
-from tauledger.hand.looking_in import diode_joint
+from tauledger.hand.branches import diode_joint
+from tauledger.hand.elements import Cell
+from tauledger.hand.equivalent import EquivalentCircuit
 
 IDLE = 1e-3
 FOLLOWS = 0.05

@@ -5,7 +5,8 @@ from __future__ import annotations
 from functools import cmp_to_key
 
 from tauledger.devices.family import Device
-from tauledger.hand.equivalent import Cell, EquivalentCircuit, upper_circuit
+from tauledger.hand.elements import Cell
+from tauledger.hand.equivalent import EquivalentCircuit, upper_circuit
 from tauledger.hand.estimate import StageRow
 from tauledger.hand.looking_in import looking_in
 from tauledger.hand.miller import hand_gain

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 
-from tauledger.hand.equivalent import Cell
+from tauledger.hand.elements import Cell
 from tauledger.hand.rules.rule import Outside, Rule, divider, inverse, parallel
 
 SOURCE = "Gray, Hurst, Lewis and Meyer, Analysis and Design of Analog Integrated Circuits, 5th ed., 2009, ch. 3"

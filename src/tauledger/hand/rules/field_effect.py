@@ -7,7 +7,7 @@ from __future__ import annotations
 
 import math
 
-from tauledger.hand.equivalent import Cell
+from tauledger.hand.elements import Cell
 from tauledger.hand.rules.rule import Outside, Rule, inverse
 
 BOOK = "Gray, Hurst, Lewis and Meyer, Analysis and Design of Analog Integrated Circuits, 5th ed., 2009"

@@ -6,7 +6,7 @@ import math
 from collections.abc import Callable
 from dataclasses import dataclass
 
-from tauledger.hand.equivalent import Cell
+from tauledger.hand.elements import Cell
 
 
 @dataclass(frozen=True, slots=True)
