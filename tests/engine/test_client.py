@@ -63,7 +63,7 @@ def test_operating_point_has_every_node_and_branch_by_the_users_names(engine: En
 
 
 def test_readings_come_in_full_precision(engine: Engine) -> None:
-    """g_π of a diode-connected transistor with an ideal base: I_B/V_T, far beyond the six digits of `show`."""
+    """The base conductance is 1/RB to the last digits, where `show` and `print` give six."""
     circuit = preamp()
     read = engine.bias(circuit, observations(circuit)).readings["Q1"]
     assert read["gx"] == pytest.approx(1.0 / 90.0, rel=1e-15)
