@@ -68,13 +68,13 @@ def close_edges(ratio: float = 10.0) -> Network:
 
 
 def shunt_peaked() -> Network:
-    """A coupled stage whose collector load peaks with 40 µH."""
+    """A coupled stage whose collector load peaks with 15 µH."""
     return network(
         resistance("RS", "in", "s", 100.0),
         capacitance("C1", "s", "b", 1e-6),
         resistance("RB", "b", "0", 47e3),
         *transistor("Q1", "b", "out", "0"),
-        inductance("LP", "out", "x", 40e-6),
+        inductance("LP", "out", "x", 15e-6),
         resistance("RC", "x", "0", 1e3),
         capacitance("CL", "out", "0", 47e-12),
     )
