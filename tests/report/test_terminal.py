@@ -113,6 +113,16 @@ def test_without_a_plateau_the_hand_tables_are_said_to_be_left_out() -> None:
     assert "WHOSE CAPACITANCE SETS f_H" in text, "shares do not need a plateau"
 
 
+def test_where_hand_analysis_is_withheld_no_cause_is_denied() -> None:
+    note = NoteFacts(
+        "hand-withheld", "", "taking every capacitor as a short or an open misses the gain by more than 2 %"
+    )
+    text = plain(replace(no_plateau(), midband=ECHO_PREAMP.midband, notes=(note,)))
+    assert "Hand tables are left out: the notes below say why." in text
+    assert "Note  taking every capacitor as a short" in text
+    assert "nothing of note" not in text
+
+
 def test_a_gain_that_is_not_real_is_given_with_its_angle() -> None:
     assert "(32.31 V/V at 158°)" in plain(no_plateau())
 

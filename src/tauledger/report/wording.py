@@ -110,6 +110,8 @@ def withheld(review: Review) -> str:
         return "Left out, for the rebuilt network is not ngspice's: budget, steps, shares, lower edge, poles."
     if review.midband.from_hz is None:
         return "Hand tables are left out: without a plateau no capacitor is clearly short or open."
+    if review.budget.upper is None:
+        return "Hand tables are left out: the notes below say why."
     return ""
 
 
