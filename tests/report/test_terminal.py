@@ -121,6 +121,7 @@ def test_where_hand_analysis_is_withheld_no_cause_is_denied() -> None:
     assert "Hand tables are left out: the notes below say why." in text
     assert "Note  taking every capacitor as a short" in text
     assert "nothing of note" not in text
+    assert "not in the signal path" not in text, "which is only known from the budget"
 
 
 def test_a_gain_that_is_not_real_is_given_with_its_angle() -> None:

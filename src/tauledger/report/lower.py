@@ -26,7 +26,8 @@ def lower_edge(review: Review, *, verbose: bool = False) -> Section:
     remarks = [steps_in_line(review, "f_low")] if not verbose else []
     remarks += [_sums(review.budget.lower)] if review.budget.lower and rows and verbose else []
     remarks.append(methods(review, "f_low"))
-    aside = [part_title(part.name, part.owner) for part in short if not part.in_path]
+    # Whether signal passes a capacitor is known only where the budget is.
+    aside = [part_title(part.name, part.owner) for part in short if not part.in_path and review.budget.lower]
     if aside:
         remarks.append(f"{', '.join(aside)} not in the signal path")
     for word, says in (("gain", "sets the mid-band gain"), ("tuned", "resonates, neither short nor open")):
