@@ -268,6 +268,89 @@ R1 n y {k*1k}
 R2 y 0 1k
 .ends
 """,
+    "a parameter's own name means the one outside": """own names
+.param a=2 p=4
+V1 in 0 1 AC 1
+X1 in o1 local
+X2 in o2 default
+X3 in o3 given p=p
+X4 in o4 given p={p*2}
+X5 in o5 given p=a
+X6 in o6 early a=3
+.subckt local n y
+.param a={a+1}
+R1 n y {a*1k}
+R2 y 0 1k
+.ends
+.subckt default n y a={a}
+R1 n y {a*1k}
+R2 y 0 1k
+.ends
+.subckt given n y p=1 a=7
+R1 n y {p*1k}
+R2 y 0 1k
+.ends
+.subckt early n y a=2
+.param a=5
+R1 n y {a*1k}
+R2 y 0 1k
+.ends
+""",
+    "definitions of subcircuits twice, nested, as macro, and a port called 0": """definitions
+V1 in 0 1 AC 1
+X1 in o1 s
+X2 in o2 outer
+X3 in o3 mac
+X4 in o4 vv low
+X5.a in o5 s
+R0 vv in 1k
+R1 o1 0 1k
+R2 o2 0 1k
+R3 o3 0 1k
+R5 o5 0 1k
+.subckt s n y
+R1 n m 1k
+R2 m y 1k
+.ends
+.subckt s n y
+R1 n y 5k
+.ends
+.subckt outer n y
+.subckt s a b
+R1 a b 3k
+.ends
+X1 n y s
+.ends
+.macro mac a b
+R1 a b 1k
+.eom
+.subckt low n y 0
+R1 n y 1k
+R2 y 0 2k
+.ends
+""",
+    "extremes: no inductance, no capacitance, a very small resistor": """extremes
+V1 in 0 1 AC 1
+R1 in a 1e-5
+L1 a out 0
+C1 out 0 0
+R2 out 0 1k
+""",
+    "time functions with all their arguments": """functions
+V1 in 0 SIN(1 2 1k 1m 0 30) AC 1
+V2 b 0 EXP(1 2 1u 1u 2u 1u)
+V3 c 0 AM(1 0.5 1k 10k 0)
+V4 d 0 SFFM(0.2 1 1k 5 100 30 40)
+V5 e 0 PWL(0 1 1m 2) r=0
+V6 f 0 PWL(0 1 1m 2) td=1m
+V7 g 0 PWL(1 1 2 2)
+R1 in b 1k
+R2 b c 1k
+R3 c d 1k
+R4 d e 1k
+R5 e f 1k
+R6 f g 1k
+""",
     "analyses, outputs and a script are read past": "hints\n"
     + STAGE
     + MODEL

@@ -33,7 +33,7 @@ def judged(path: Path, circuit: Circuit) -> float:
     for theirs, ours in zip(original, flat, strict=True):
         nodes = {name for name in theirs if not name.endswith("#branch") and name != "frequency"}
         assert nodes == {fold(name) for name in circuit.nodes[1:]}
-        scale = max(abs(value) for values in theirs.values() for value in values)
+        scale = max(1e-30, *(abs(value) for values in theirs.values() for value in values))
         for number, name in enumerate(circuit.nodes[1:], 1):
             pairs = zip(theirs[fold(name)], ours[f"n{number}"], strict=True)
             worst = max(worst, *(abs(a - b) / max(abs(a), 1e-6 * scale) for a, b in pairs))

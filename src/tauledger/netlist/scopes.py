@@ -15,7 +15,7 @@ from tauledger.errors import Diagnostic, NetlistError
 from tauledger.netlist.diagnostics import Site, nearest
 from tauledger.netlist.expressions import evaluate
 from tauledger.netlist.formulas import Formula, Name, Tree, names
-from tauledger.netlist.items import Quoted, Setting, Value, Word
+from tauledger.netlist.items import Quoted, Setting, Value, Word, width
 from tauledger.netlist.numbers import read_number
 
 
@@ -95,18 +95,15 @@ def work_out_all(scope: Scope, faults: list[Diagnostic]) -> None:
             return
 
 
-def number_of(site: Site, value: Value, scope: Scope, *, what: str = "a number or a parameter") -> float:
-    """Give the value of a word or formula on a card in SI units.
-
-    what: what is expected there, for the message. Raises NetlistError at the value.
-    """
+def number_of(site: Site, value: Value, scope: Scope) -> float:
+    """Give the value of a word or formula on a card in SI units; raises NetlistError at the value."""
     if isinstance(value, Formula):
         try:
             return _formula(site, value, scope, own="")
         except RecursionError as error:
             raise site.fault(value, "parameters and formulas are nested too deeply") from error
     if isinstance(value, Quoted):
-        raise site.fault(value, f"{what} is expected, not text", "put a formula in braces: {..}")
+        raise site.fault(value, "a number is expected here, not text", "put a formula in braces: {..}")
     decimal = read_number(value.text)
     if decimal is not None:
         if decimal.tail[:1].isdigit():
@@ -121,7 +118,7 @@ def number_of(site: Site, value: Value, scope: Scope, *, what: str = "a number o
     found = find(scope, fold(value.text))
     if found is None:
         hint = nearest(value.text, known_names(scope))
-        raise site.fault(value, f"{value.text!r} is not {what}", hint)
+        raise site.fault(value, f"{value.text!r} is neither a number nor a parameter", hint)
     return found
 
 
@@ -160,25 +157,43 @@ def _standing(binding: Binding) -> tuple[int, int, int]:
 
 
 def _bound(scope: Scope, name: str, binding: Binding) -> float:
+    """Work out a definition; its own name means what is defined outside of the scope, where there is an outside."""
     site, value = binding.site, binding.setting.value
     outer = scope.outer
-    if not binding.actual or outer is None:
-        return _formula(site, value, scope, own="") if isinstance(value, Formula) else number_of(site, value, scope)
-    mentioned = {fold(text) for text in names(value.tree)} if isinstance(value, Formula) else set()
-    if isinstance(value, Word):
-        mentioned = {fold(value.text)}
-    captured = (mentioned - {name}) & scope.bindings.keys()
-    if not captured or not isinstance(value, Formula):
-        return number_of(site, value, outer)
-    taken = _formula(site, value, scope, own=name)
-    callers = _formula(site, value, outer, own="")
+    if outer is None:
+        return _read_in(site, value, scope, own="")
+    if not binding.actual:
+        return _read_in(site, value, scope, own=name)
+    captured = (set(_mentioned(value)) - {name}) & scope.bindings.keys()
+    if not captured:
+        return _read_in(site, value, outer, own="")
+    taken = _read_in(site, value, scope, own=name)
+    callers = _read_in(site, value, outer, own="")
     if taken != callers:
+        text = site.card.text[value.at : value.at + width(value)]
         says = (
-            f"{binding.setting.name.text}={{{value.text}}} is {taken:.6g}: ngspice takes {', '.join(sorted(captured))} "
-            f"from the subcircuit that is called; with the caller's it would be {callers:.6g}"
+            f"{binding.setting.name.text}={text} is {taken:.6g}: ngspice takes {', '.join(sorted(captured))} from the "
+            f"subcircuit that is called; with the caller's it would be {callers:.6g}"
         )
         scope.notes.append(ReadingNote(site.where, says))
     return taken
+
+
+def _mentioned(value: Value) -> Iterator[str]:
+    """Run through the folded names that a value mentions."""
+    if isinstance(value, Formula):
+        yield from map(fold, names(value.tree))
+    elif isinstance(value, Word):
+        yield fold(value.text)
+
+
+def _read_in(site: Site, value: Value, scope: Scope, *, own: str) -> float:
+    """Give a value as read in a scope; the name `own` is looked up outside of it."""
+    if isinstance(value, Formula):
+        return _formula(site, value, scope, own=own)
+    if isinstance(value, Word) and fold(value.text) == own and scope.outer is not None:
+        return number_of(site, value, scope.outer)
+    return number_of(site, value, scope)
 
 
 def _formula(site: Site, formula: Formula, scope: Scope, *, own: str) -> float:

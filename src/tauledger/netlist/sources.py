@@ -132,6 +132,11 @@ def _at_start(site: Site, item: Word, word: str, numbers: list[float]) -> float:
     function, least = _START[word]
     if len(numbers) < least:
         raise site.fault(item, f"{item.text} needs at least {least} numbers, not {len(numbers)}")
+    if word == "pwl" and len(numbers) % 2:
+        raise site.fault(item, f"{item.text} needs pairs of time and value", "write PWL(0 0 1u 5)")
+    if any(numbers[place] < 0.0 for place in _DELAYS.get(word, ()) if place < len(numbers)):
+        hint = "leave the delay out, or write the operating point as DC value and take the function out"
+        raise site.fault(item, "a negative delay is not supported by this version", hint)
     return function(numbers)
 
 
@@ -153,10 +158,9 @@ def _piecewise(numbers: list[float]) -> float:
 
 
 def _modulated_frequency(numbers: list[float]) -> float:
-    index = numbers[3] if len(numbers) > 3 else 0.0
     carrier = numbers[5] if len(numbers) > 5 else 0.0
     signal = numbers[6] if len(numbers) > 6 else 0.0
-    return numbers[0] + numbers[1] * math.sin(math.radians(carrier) + index * math.sin(math.radians(signal)))
+    return numbers[0] + numbers[1] * math.sin(math.radians(carrier) + numbers[3] * math.sin(math.radians(signal)))
 
 
 _START: dict[str, tuple[Callable[[list[float]], float], int]] = {
@@ -165,6 +169,9 @@ _START: dict[str, tuple[Callable[[list[float]], float], int]] = {
     "sin": (_sine, 2),
     "sine": (_sine, 2),
     "pwl": (_piecewise, 2),
-    "sffm": (_modulated_frequency, 2),
+    "sffm": (_modulated_frequency, 5),
     "am": (lambda _numbers: 0.0, 3),
 }
+
+# Where the delays stand in the argument list; with a negative one the function has begun before t = 0.
+_DELAYS = {"pulse": (2,), "exp": (2, 4), "sin": (3,), "sine": (3,)}
