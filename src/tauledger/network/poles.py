@@ -109,9 +109,12 @@ def pole_owners(network: Network, poles: Complex) -> tuple[dict[str, float], ...
     if not len(moving):
         return tuple(result)
     right, left = _eigenvectors(network, poles[moving])
-    taken = terms.value * (left @ terms.out) * (right @ terms.control)
+    pushed, seen = left @ terms.out, right @ terms.control
+    taken = terms.value * pushed * seen
     whole = np.sum(taken, axis=1)
-    simple = np.abs(whole) > DEFECTIVE * np.sum(np.abs(taken), axis=1)
+    # Cauchy and Schwarz bound the whole by these; far below, left and right are orthogonal and the pole is multiple
+    bound = np.sqrt(np.abs(pushed) ** 2 @ np.abs(terms.value)) * np.sqrt(np.abs(seen) ** 2 @ np.abs(terms.value))
+    simple = np.abs(whole) > DEFECTIVE * bound
     for k in np.flatnonzero(simple):
         result[moving[k]] = dict(zip(terms.names, (taken[k] / whole[k]).real.tolist(), strict=True))
     return tuple(result)

@@ -11,11 +11,15 @@ import numpy as np
 
 from tauledger.errors import NetworkError
 from tauledger.network.assemble import Network
-from tauledger.network.solve import Complex, Real
+from tauledger.network.solve import Complex, Real, log_slope, solve, times
 
 # Beyond 1e15 Hz only rounding of the infinite natural frequencies is found.
 HIGHEST_RAD_S = 2.0 * np.pi * 1e15
 WINDOW = 1e3
+# Windows must not begin where poles stand, and poles like to stand a round factor apart.
+OFF_ROUND = 0.7
+SAME = 1e-6
+NEWTON_STEP = 1e-2
 _SPREAD = 0.5 * 2.0 ** np.arange(6)
 RESONANCE_OFFSETS = np.concatenate([-_SPREAD[::-1], _SPREAD])
 
@@ -38,8 +42,11 @@ def pole_frequencies(network: Network) -> Complex:
 def zero_frequencies(network: Network, poles: Complex) -> Complex:
     """Give all finite zeros of the transfer function in rad/s, sorted like the poles.
 
-    They are the natural frequencies of the bordered pencil [Y −b; eᵀ 0] (output nulled, drive free). A zero that lies
-    a million times below the lowest pole counts as one at the origin. `poles` sets the range.
+    They are the natural frequencies of the bordered pencil [Y −b; eᵀ 0] (output nulled, drive free). That pencil is
+    defective at infinity and at the origin, where rounding scatters its values; so the zeros at the origin are counted
+    by the slope of H, and elsewhere a value counts only where H really vanishes. A zero that lies a million times below
+    the lowest pole counts as one at the origin. `poles` (rad/s) sets the range.
+    Raises NetworkError where the pencil is singular at every s: no signal reaches the output.
     Source: Rosenbrock, "State-space and multivariable theory", 1970 (system matrix).
     """
     finite = np.abs(poles[np.abs(poles) > 0.0])
@@ -51,11 +58,26 @@ def zero_frequencies(network: Network, poles: Complex) -> Complex:
     g[:n, n], g[n, :n] = -network.drive, network.output
     c = np.zeros_like(g)
     c[:n, :n] = network.capacitance.dense(n)
-    start = float(finite.min()) / WINDOW
-    stop = min(float(finite.max()) * WINDOW * WINDOW, HIGHEST_RAD_S)
-    at_origin = np.abs(shifted(g, c, start)) < start / WINDOW
-    zeros = natural_frequencies(g, c, start / WINDOW, stop)
-    return in_order(np.concatenate([np.zeros(int(at_origin.sum()), dtype=complex), zeros]))
+    start = OFF_ROUND * float(finite.min()) / WINDOW**2
+    found = natural_frequencies(g, c, start, min(float(finite.max()) * WINDOW**2, HIGHEST_RAD_S))
+    bottom = solve(network, np.array([start], dtype=complex))
+    at_origin = round(float(log_slope(network, bottom)[0].real)) + int(np.sum(poles == 0.0))
+    return in_order(np.concatenate([np.zeros(max(at_origin, 0), dtype=complex), _vanishing(network, found, poles)]))
+
+
+def _vanishing(network: Network, s: Complex, poles: Complex) -> Complex:
+    """Keep the values where Newton's step on H is small, and those on a pole, which they cancel."""
+    if not len(s):
+        return s
+    on_a_pole = np.min(np.abs(s[:, None] - poles), axis=1) <= SAME * np.abs(s)
+    kept = on_a_pole.copy()
+    asked = np.flatnonzero(~on_a_pole)
+    if len(asked):
+        at = solve(network, s[asked])
+        derivative = np.sum(at.adjoint * times(network.capacitance, at.x), axis=1)
+        kept[asked] = np.abs(at.response) <= NEWTON_STEP * np.abs(at.s * derivative)
+    remaining: Complex = s[kept]
+    return remaining
 
 
 def natural_frequencies(g: Complex | Real, c: Complex | Real, start: float, stop: float = HIGHEST_RAD_S) -> Complex:
@@ -95,8 +117,11 @@ def in_order(s: Complex) -> Complex:
     """
     real = np.abs(s.imag) <= 1e-9 * np.abs(s)
     s = np.where(real, s.real + 0j, s)
-    key = np.array([float(f"{abs(value):.9e}") for value in s])
-    return s[np.lexsort((s.imag, s.real, key))]
+    s = s[np.argsort(np.abs(s), kind="stable")]
+    for k in range(len(s) - 1):
+        if s[k].imag > 0.0 and abs(s[k + 1] - np.conj(s[k])) <= SAME * abs(s[k]):
+            s[[k, k + 1]] = s[[k + 1, k]]
+    return s
 
 
 def _lowest(g: Real, c: Real) -> tuple[float, int] | None:
@@ -106,7 +131,7 @@ def _lowest(g: Real, c: Real) -> tuple[float, int] | None:
     if _regular(g):
         s = np.abs(shifted(g, c, 0.0))
         finite = s[s < HIGHEST_RAD_S]
-        return (float(finite.min()) * 0.999, 0) if len(finite) else None
+        return (float(finite.min()) * OFF_ROUND, 0) if len(finite) else None
     # G is singular: no time constant of the network is much longer than its largest part over its smallest
     conductances, capacitances = np.abs(g[g != 0.0]), np.abs(c[c != 0.0])
     shift = (float(conductances.min()) if len(conductances) else 1.0) / float(capacitances.max()) / WINDOW
