@@ -90,6 +90,42 @@ def common_emitter_1ma() -> Network:
     )
 
 
+def common_emitter_600_ohm() -> Network:
+    """Kumar and Jain, Electronic Devices and Circuits (PHI), Ex. 10.16."""
+    return driven(
+        resistance("RS", "s", "b", 600),
+        stage("Q1", "b", "out", "0", 0.1, r_pi=1 * K, c_pi=19.5 * PICO, c_mu=0.5 * PICO),
+        resistance("RC", "out", "0", 1.5 * K),
+    )
+
+
+def common_emitter_8k() -> Network:
+    """Sedra and Smith, Microelectronic Circuits, 5th-7th ed., common-emitter example (from memory)."""
+    return driven(
+        resistance("Rsig", "s", "i", 5 * K),
+        resistance("RB", "i", "0", 100 * K),
+        resistance("rx", "i", "b", 50),
+        stage("Q1", "b", "out", "0", 40 * MILLI, r_pi=2.5 * K, c_pi=7 * PICO, c_mu=1 * PICO),
+        resistance("RL", "out", "0", 3 * K),
+    )
+
+
+def common_source_400_mhz() -> Network:
+    """Gray, Hurst, Lewis and Meyer, 5th ed. (2009), sec. 7.2.1.2 example: g_m 14.1 mA/V, C_gs 5.1 pF, C_gd 0.5 pF."""
+    return common_source(1 * K, 14.1 * MILLI, 5 * K, 5.1 * PICO, 0.5 * PICO)
+
+
+def source_follower() -> Network:
+    """Sedra and Smith, Microelectronic Circuits, 8th ed., Ex. 10.8: R_sig 10 kohm, R_L' 2 kohm, C_L 15 fF."""
+    return driven(
+        resistance("Rsig", "s", "g", 10 * K),
+        stage("M1", "g", "0", "out", 2 * MILLI, c_pi=20 * FEMTO),
+        capacitance("Cgd", "g", "0", 5 * FEMTO),
+        resistance("RL", "out", "0", 2 * K),
+        capacitance("CL", "out", "0", 15 * FEMTO),
+    )
+
+
 def two_common_source_stages() -> Network:
     """Gray, Hurst, Lewis and Meyer, 5th ed. (2009), sec. 7.3.3 example, Figs 7.27 and 7.28."""
     return driven(
@@ -181,8 +217,13 @@ def compensated_stage() -> Network:
 
 def common_source_100k() -> Network:
     """Sedra and Smith, Microelectronic Circuits, 5th-7th ed., common-source example (from memory)."""
-    extra = (resistance("RG", "g", "0", 4.7 * M), resistance("ro", "out", "0", 150 * K))
-    return common_source(100 * K, 1 * MILLI, 7.5 * K, 1 * PICO, 0.4 * PICO, extra=extra)
+    return driven(
+        resistance("Rsig", "s", "g", 100 * K),
+        resistance("RG", "g", "0", 4.7 * M),
+        stage("M1", "g", "out", "0", 1 * MILLI, r_o=150 * K, c_pi=1 * PICO, c_mu=0.4 * PICO),
+        resistance("RD", "out", "0", 15 * K),
+        resistance("RL", "out", "0", 15 * K),
+    )
 
 
 def output_pole_first() -> Network:

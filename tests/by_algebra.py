@@ -8,9 +8,9 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterable
-from dataclasses import replace
 
 import numpy as np
+from msgspec.structs import replace
 
 from tauledger.causes.evidence import EdgeEvidence, Evidence
 from tauledger.circuit import GROUND
@@ -120,7 +120,7 @@ def plain_capacitor(name: str, hz: float, *, exact: float | None = None, zero_hz
 
 def _row(upper: Network, node: str, ohm: float, farad: float, exact: float, terms: Iterable[MillerTerm]) -> SignalNode:
     tau = ohm * farad
-    line = InnerLine(node, _looking_in(ohm), ohm, tuple(terms), farad, tau, exact)
+    line = InnerLine(node, node, _looking_in(ohm), ohm, tuple(terms), farad, tau, exact)
     role = "output" if node in (upper.port.plus, upper.port.minus) else "node"
     return replace(
         plain_node(node, tau, exact=exact, role=role),

@@ -2,10 +2,9 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-
 import numpy as np
 from hypothesis import strategies as st
+from msgspec import Struct
 
 from tauledger.circuit import Port
 from tauledger.devices.parts import (
@@ -27,8 +26,7 @@ def decades(low: float, high: float) -> st.SearchStrategy[float]:
     return st.floats(np.log10(low), np.log10(high)).map(lambda exponent: float(f"{10.0**exponent:.1e}"))
 
 
-@dataclass(frozen=True, slots=True)
-class Kind:
+class Kind(Struct, frozen=True):
     """What a random amplifier may have."""
 
     coupled: bool = True

@@ -9,14 +9,16 @@ import subprocess
 import sys
 import threading
 from collections.abc import Callable
-from dataclasses import replace
+from contextlib import nullcontext
 from pathlib import Path
 from typing import Any
 
 import pytest
+from msgspec.structs import replace
 
 from report.literal import ECHO_PREAMP
 from tauledger import cli, pipeline
+from tauledger.engine import client
 from tauledger.errors import (
     Diagnostic,
     EngineError,
@@ -41,10 +43,16 @@ def asked(monkeypatch: pytest.MonkeyPatch) -> dict[str, Any]:
     seen: dict[str, Any] = {}
 
     def review(path: str, **options: object) -> Review:
+        assert options.pop("engine") is None
         seen.update(options, path=path)
         return ECHO_PREAMP
 
+    def start(**options: object) -> nullcontext[None]:
+        seen.update(options)
+        return nullcontext()
+
     monkeypatch.setattr(pipeline, "review", review)
+    monkeypatch.setattr(client, "start_engine", start)
     return seen
 
 

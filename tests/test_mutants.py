@@ -6,12 +6,12 @@ A suite that passes with one of these in place would prove nothing.
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import replace
 from pathlib import Path
 
 import pytest
+from msgspec.structs import replace
 
-import textbook
+import boards
 from tauledger.circuit import Circuit
 from tauledger.devices import gummel_poon
 from tauledger.devices.catalogue import linearise
@@ -130,7 +130,7 @@ def test_mutant_miller_with_the_gain_instead_of_one_plus_the_gain(monkeypatch: p
         return replace(term, factor=abs(term.gain)) if abs(term.gain) > 1.0 else term
 
     def printed_capacitance() -> float:
-        node = next(row for row in review_network(textbook.common_source_400_mhz()).nodes if row.name == "g")
+        node = next(row for row in review_network(boards.common_source_400_mhz()).nodes if row.name == "g")
         assert node.capacitance_f is not None
         return node.capacitance_f
 

@@ -15,10 +15,12 @@ if TYPE_CHECKING:
     from tauledger.netlist.elaborate import elaborate
     from tauledger.netlist.reader import read
     from tauledger.network.assemble import Network
-    from tauledger.pipeline import review
+    from tauledger.pipeline import review, review_network
     from tauledger.record import Review
     from tauledger.report.json import to_json
     from tauledger.report.terminal import render
+
+__version__ = "0.1.0"
 
 _HOMES = {
     "Change": "tauledger.circuit",
@@ -32,6 +34,7 @@ _HOMES = {
     "read": "tauledger.netlist.reader",
     "render": "tauledger.report.terminal",
     "review": "tauledger.pipeline",
+    "review_network": "tauledger.pipeline",
     "to_json": "tauledger.report.json",
 }
 
@@ -47,6 +50,7 @@ __all__ = [
     "read",
     "render",
     "review",
+    "review_network",
     "to_json",
 ]
 

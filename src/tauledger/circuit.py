@@ -7,10 +7,10 @@ room finds file, line and column again.
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
 from typing import Literal
 
 import numpy as np
+from msgspec import Struct, field
 from numpy.typing import NDArray
 
 GROUND = "0"
@@ -28,8 +28,7 @@ def fold(name: str) -> str:
     return "".join(chr(ord(c) + 32) if "A" <= c <= "Z" else c for c in name)
 
 
-@dataclass(frozen=True, slots=True)
-class Place:
+class Place(Struct, frozen=True):
     """A position in a file: path as typed, line and column from 1, and the physical line itself."""
 
     file: str
@@ -38,16 +37,14 @@ class Place:
     text: str
 
 
-@dataclass(frozen=True, slots=True)
-class ReadingNote:
+class ReadingNote(Struct, frozen=True):
     """What the reader must know about how the netlist was read: where ("board.cir:12"), and a sentence."""
 
     where: str
     says: str
 
 
-@dataclass(frozen=True, slots=True)
-class Instance:
+class Instance(Struct, frozen=True):
     """One instance of a subcircuit: `path` of an item is its number in `Circuit.instances`; number 0 is the netlist.
 
     name: hierarchical, "X1.X2". subcircuit: name of its `.subckt`. card: its X card. definition: the `.subckt` card.
@@ -61,8 +58,7 @@ class Instance:
     parent: int
 
 
-@dataclass(frozen=True, slots=True)
-class Port:
+class Port(Struct, frozen=True):
     """Where a signal is taken: a node voltage, a difference of two, or the current through a voltage source.
 
     plus, minus: node names. through: name of the voltage source (or inductor) for a current.
@@ -79,8 +75,7 @@ class Port:
         return f"v({self.plus})" if self.minus == GROUND else f"v({self.plus},{self.minus})"
 
 
-@dataclass(frozen=True, slots=True)
-class Drive:
+class Drive(Struct, frozen=True):
     """One driven source: its name, what it forces, and its complex AC amplitude in V or A."""
 
     source: str
@@ -88,8 +83,7 @@ class Drive:
     amplitude: complex
 
 
-@dataclass(frozen=True, slots=True)
-class Passives:
+class Passives(Struct, frozen=True):
     """All plain resistors, capacitors and inductors as columns of equal length.
 
     kind: one of R, C, L each. a, b: node numbers (n,). value: ohm, farad or henry (n,), multiplicity included.
@@ -108,8 +102,7 @@ class Passives:
         return len(self.name)
 
 
-@dataclass(frozen=True, slots=True)
-class Element:
+class Element(Struct, frozen=True):
     """One element that is not a plain R, C or L.
 
     letter: element letter in upper case. nodes: node numbers in the order of the card. model: name of the model
@@ -130,8 +123,7 @@ class Element:
         return dict(self.parameters).get(name, default)
 
 
-@dataclass(frozen=True, slots=True)
-class Model:
+class Model(Struct, frozen=True):
     """One `.model` card: its flat name, type and level, and its parameters in SI units, names folded."""
 
     name: str
@@ -146,8 +138,7 @@ class Model:
         return dict(self.parameters).get(name, default)
 
 
-@dataclass(frozen=True, slots=True)
-class Load:
+class Load(Struct, frozen=True):
     """A resistor (ohm) or capacitor (farad) added between two nodes, e.g. a probe."""
 
     kind: Literal["R", "C"]
@@ -156,8 +147,7 @@ class Load:
     value: float
 
 
-@dataclass(frozen=True, slots=True)
-class Change:
+class Change(Struct, frozen=True):
     """How a circuit differs from its netlist: the one record behind every option and condition.
 
     temperature_c: analysis temperature in °C, or None. parameters: global `.param` values. elements: values of
@@ -176,8 +166,7 @@ class Change:
 NO_CHANGE = Change()
 
 
-@dataclass(frozen=True, slots=True)
-class Circuit:
+class Circuit(Struct, frozen=True):
     """The flat circuit for operating point and AC: what the engine is given and the network is rebuilt from.
 
     nodes: node names by number; nodes[0] is "0". drive: the sources that are driven, with complex amplitude.

@@ -13,6 +13,7 @@ from typing import TYPE_CHECKING
 
 import click
 
+from tauledger import __version__
 from tauledger.errors import ExitCode, InputError, NetlistError, NetworkError, TauledgerError
 
 if TYPE_CHECKING:
@@ -39,7 +40,7 @@ def main(arguments: list[str] | None = None) -> None:
 
 
 @click.group(context_settings={"help_option_names": ["-h", "--help"]})
-@click.version_option(package_name="tauledger", message="%(prog)s %(version)s")
+@click.version_option(__version__, message="%(prog)s %(version)s")
 def command() -> None:
     """Reconcile the hand analysis of a transistor amplifier with its SPICE simulation."""
 
@@ -73,9 +74,13 @@ def review_command(
     midband_hz = None if midband is None else _hertz(midband)
     target = None if json_file in (None, "-") else _writable(Path(str(json_file)))
 
-    from tauledger.pipeline import review
+    from tauledger.engine.client import start_engine
 
-    found = review(netlist, drive=drive, output=output, midband_hz=midband_hz, timeout_s=timeout, library=library)
+    # ngspice comes up in its own process while the rest of this one is imported.
+    with start_engine(library=library, timeout_s=timeout) as engine:
+        from tauledger.pipeline import review
+
+        found = review(netlist, engine=engine, drive=drive, output=output, midband_hz=midband_hz)
     if json_file is not None:
         from tauledger.report.json import to_json
 

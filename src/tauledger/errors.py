@@ -11,8 +11,8 @@ TauledgerError
 
 from __future__ import annotations
 
-from dataclasses import dataclass
 from enum import IntEnum
+from typing import NamedTuple
 
 
 class ExitCode(IntEnum):
@@ -50,8 +50,7 @@ class InputError(TauledgerError):
         return f"{self.message}\n  {self.hint}" if self.hint else self.message
 
 
-@dataclass(frozen=True, slots=True)
-class Diagnostic:
+class Diagnostic(NamedTuple):
     """One thing wrong with a netlist, where it stands, and what would be right.
 
     file: path as the user typed it. line, column: from 1. text: the physical line without its end.

@@ -7,10 +7,10 @@ it. Where the rebuilt network does not agree with ngspice, nothing is explained.
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
 from typing import Literal
 
 import numpy as np
+from msgspec import Struct
 
 from tauledger.causes.catalogue import find_causes, find_notes
 from tauledger.causes.cause import Cause, Note
@@ -44,8 +44,7 @@ from tauledger.numbers import Numbers
 TEN_PERCENT_LESS = 0.9
 
 
-@dataclass(frozen=True, slots=True)
-class Explanation:
+class Explanation(Struct, frozen=True):
     """What `explain` adds to the numbers.
 
     shares_high, shares_low: None where there is no such edge. ten_percent_less: both edges with one part at a time 10 %

@@ -7,9 +7,9 @@ with parts of other value, which is what "rerun" and "10 % less" mean.
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
 
 import numpy as np
+from msgspec import Struct
 from numpy.typing import NDArray
 
 from tauledger.circuit import Change, Circuit
@@ -36,8 +36,7 @@ HIGHEST_HZ = 1e12
 DISAGREES = 1e-3
 
 
-@dataclass(frozen=True, slots=True)
-class Numbers:
+class Numbers(Struct, frozen=True):
     """All numbers of one circuit under one condition: what a tolerance draw needs.
 
     poles: of the full network, with zeros. circuit, bias, simulated, agreement: None without netlist and engine.

@@ -11,21 +11,19 @@ extent are 0 and None. Renderers get this record and nothing else.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from msgspec import Struct, field
 
 SCHEMA = "tauledger.review/1"
 
 
-@dataclass(frozen=True, slots=True)
-class EngineFacts:
+class EngineFacts(Struct, frozen=True):
     """Which engine answered."""
 
     name: str
     version: str
 
 
-@dataclass(frozen=True, slots=True)
-class NetlistFacts:
+class NetlistFacts(Struct, frozen=True):
     """The netlist: path as typed, title, SHA-256 of all files read in order, and what was read past, by word and
     count."""
 
@@ -35,8 +33,7 @@ class NetlistFacts:
     read_past: str = ""
 
 
-@dataclass(frozen=True, slots=True)
-class DriveFacts:
+class DriveFacts(Struct, frozen=True):
     """One driven source; resistance_ohm is the single resistor in series with it, None where there is no such
     one."""
 
@@ -47,8 +44,7 @@ class DriveFacts:
     resistance_ohm: float | None = None
 
 
-@dataclass(frozen=True, slots=True)
-class LoadFacts:
+class LoadFacts(Struct, frozen=True):
     """One passive from the output straight to ground: its name, kind (R, C, L) and value."""
 
     name: str
@@ -56,8 +52,7 @@ class LoadFacts:
     value: float
 
 
-@dataclass(frozen=True, slots=True)
-class OutputFacts:
+class OutputFacts(Struct, frozen=True):
     """Where the response is taken. kind: voltage or current; plus and minus are nodes, through the source of a
     current."""
 
@@ -68,8 +63,7 @@ class OutputFacts:
     load: tuple[LoadFacts, ...] = ()
 
 
-@dataclass(frozen=True, slots=True)
-class MidbandFacts:
+class MidbandFacts(Struct, frozen=True):
     """The reference of all band edges: the plateau of highest gain.
 
     from_hz, to_hz: its extent, both None where there is no plateau; 0 where it reaches DC; `to_hz` None with
@@ -86,8 +80,7 @@ class MidbandFacts:
     unit: str
 
 
-@dataclass(frozen=True, slots=True)
-class AgreementFacts:
+class AgreementFacts(Struct, frozen=True):
     """Largest |ΔH| / max(|H|, 1e-6·|H_mid|) between the rebuilt network and ngspice's sweep, and where."""
 
     max_relative_error: float
@@ -95,8 +88,7 @@ class AgreementFacts:
     points: int
 
 
-@dataclass(frozen=True, slots=True)
-class EdgeFacts:
+class EdgeFacts(Struct, frozen=True):
     """One band edge: first -3 dB crossing going outwards from mid-band.
 
     slope: d ln|H| / d ln f there. phase_deg: phase beyond mid-band. peaking_db: above mid-band on this side.
@@ -114,8 +106,7 @@ class EdgeFacts:
     rise_time_s: float | None = None
 
 
-@dataclass(frozen=True, slots=True)
-class Estimate:
+class Estimate(Struct, frozen=True):
     """One method's answer for one edge ("f_high" or "f_low")."""
 
     edge: str
@@ -125,8 +116,7 @@ class Estimate:
     recommended: bool = False
 
 
-@dataclass(frozen=True, slots=True)
-class Step:
+class Step(Struct, frozen=True):
     """One step from paper to simulation: the estimate after it, the factor by which it moved, and why."""
 
     edge: str
@@ -136,16 +126,14 @@ class Step:
     why: str
 
 
-@dataclass(frozen=True, slots=True)
-class EdgePair:
+class EdgePair(Struct, frozen=True):
     """One number for each band edge, None where the edge does not exist."""
 
     f_high: float | None
     f_low: float | None
 
 
-@dataclass(frozen=True, slots=True)
-class ResistanceTerm:
+class ResistanceTerm(Struct, frozen=True):
     """One of the resistances in parallel at a node: a resistor's name or a looking-in phrase such as "into base
     of Q1"."""
 
@@ -153,8 +141,7 @@ class ResistanceTerm:
     ohm: float
 
 
-@dataclass(frozen=True, slots=True)
-class CapacitanceTerm:
+class CapacitanceTerm(Struct, frozen=True):
     """One capacitance at a node with its Miller factor: it counts as farad·factor there; gain_* is K to its other end.
 
     time_constant_s: what it adds to the node's row, with the resistance at its own place (an inner node of a device
@@ -170,8 +157,7 @@ class CapacitanceTerm:
     text: str = ""
 
 
-@dataclass(frozen=True, slots=True)
-class Working:
+class Working(Struct, frozen=True):
     """How the hand resistance and capacitance of a node came about.
 
     source: rule, loop, branch or solved (the exact value, because no rule fits). loop_gain: T of the one-loop
@@ -186,8 +172,7 @@ class Working:
     source: str
 
 
-@dataclass(frozen=True, slots=True)
-class NodeRow:
+class NodeRow(Struct, frozen=True):
     """One signal node in the time-constant budget; `time_constant_s` is by hand, `time_constant_exact_s` is exact.
 
     name: the netlist's node. title: as the trade says it, "base of Q1 (b)". per_farad: ∂f/∂C in Hz/F for
@@ -210,19 +195,17 @@ class NodeRow:
     working: Working | None
 
 
-@dataclass(frozen=True, slots=True)
-class TenPercent:
+class TenPercent(Struct, frozen=True):
     """Band edges recomputed with this part 10 % smaller, bias frozen."""
 
     f_high_hz: float | None
     f_low_hz: float | None
 
 
-@dataclass(frozen=True, slots=True)
-class PartRow:
+class PartRow(Struct, frozen=True):
     """One capacitance, inductance or transcapacitance (four nodes: output pair, control pair).
 
-    klass is written as "class" in JSON: short, open, gain, tuned. edge_hz: 1/(2πRC) of a coupling or bypass
+    klass, "class" in JSON: short, open, gain, tuned. edge_hz: 1/(2πRC) of a coupling or bypass
     capacitor;
     zero_hz: the zero that it makes alone. time_constant_s = resistance_exact_ohm · value.
     """
@@ -232,7 +215,7 @@ class PartRow:
     kind: str
     nodes: tuple[str, ...]
     value: float
-    klass: str
+    klass: str = field(name="class")
     in_path: bool
     weight: float | None
     resistance_hand_ohm: float | None
@@ -244,8 +227,7 @@ class PartRow:
     ten_percent_less: TenPercent
 
 
-@dataclass(frozen=True, slots=True)
-class UpperBudget:
+class UpperBudget(Struct, frozen=True):
     """Sums over the upper network, in s: over all open parts, −Σ1/p, over the rows that count, weighted, and the
     phase slope."""
 
@@ -256,8 +238,7 @@ class UpperBudget:
     group_delay_s: float
 
 
-@dataclass(frozen=True, slots=True)
-class LowerBudget:
+class LowerBudget(Struct, frozen=True):
     """Sums over the lower network in Hz: short-circuit time constants, and −Σp/2π; None where an all-capacitor
     loop exists."""
 
@@ -265,24 +246,21 @@ class LowerBudget:
     pole_sum_hz: float | None
 
 
-@dataclass(frozen=True, slots=True)
-class Budget:
+class Budget(Struct, frozen=True):
     """Both time-constant budgets; None where the reference has no plateau."""
 
     upper: UpperBudget | None
     lower: LowerBudget | None
 
 
-@dataclass(frozen=True, slots=True)
-class Owner:
+class Owner(Struct, frozen=True):
     """A part that a pole depends on: d ln|p| / d ln(value), sign turned so that "owns all of it" is 1."""
 
     part: str
     share: float
 
 
-@dataclass(frozen=True, slots=True)
-class PoleFacts:
+class PoleFacts(Struct, frozen=True):
     """One pole (of a complex pair the one above the axis). hand_hz: |p|/2π by the formula named in `hand_formula`.
 
     effect: change of the band edge in per unit if the pole were absent (None where it is not near the band).
@@ -301,8 +279,7 @@ class PoleFacts:
     q: float | None = None
 
 
-@dataclass(frozen=True, slots=True)
-class ZeroFacts:
+class ZeroFacts(Struct, frozen=True):
     """One zero in Hz (of a complex pair the one above the axis)."""
 
     real_hz: float
@@ -310,8 +287,7 @@ class ZeroFacts:
     cancelled: bool = False
 
 
-@dataclass(frozen=True, slots=True)
-class Stage:
+class Stage(Struct, frozen=True):
     """One node that all signal crosses, in signal order, with the gain from the one before it."""
 
     node: str
@@ -322,8 +298,7 @@ class Stage:
     elements: tuple[str, ...]
 
 
-@dataclass(frozen=True, slots=True)
-class Figure:
+class Figure(Struct, frozen=True):
     """One figure of a device's operating point: trade symbol (i_c, v_ce, gm, r_pi, r_o, c_pi, c_mu, f_t), value,
     unit."""
 
@@ -332,8 +307,7 @@ class Figure:
     unit: str
 
 
-@dataclass(frozen=True, slots=True)
-class DeviceFacts:
+class DeviceFacts(Struct, frozen=True):
     """One device at its operating point."""
 
     name: str
@@ -342,8 +316,7 @@ class DeviceFacts:
     figures: tuple[Figure, ...]
 
 
-@dataclass(frozen=True, slots=True)
-class Curves:
+class Curves(Struct, frozen=True):
     """Responses over frequency as magnitude in dB and phase in degrees (unwrapped); None where a source is
     missing."""
 
@@ -356,8 +329,7 @@ class Curves:
     hand_deg: tuple[float, ...] | None
 
 
-@dataclass(frozen=True, slots=True)
-class SourceLine:
+class SourceLine(Struct, frozen=True):
     """A line of the netlist that the review refers to."""
 
     file: str
@@ -365,8 +337,7 @@ class SourceLine:
     text: str
 
 
-@dataclass(frozen=True, slots=True)
-class NamedNumber:
+class NamedNumber(Struct, frozen=True):
     """A number with its name and unit."""
 
     name: str
@@ -374,8 +345,7 @@ class NamedNumber:
     unit: str
 
 
-@dataclass(frozen=True, slots=True)
-class CauseFacts:
+class CauseFacts(Struct, frozen=True):
     """Why hand and simulation differ. cause: fixed id. effect: fraction by which it moves `quantity`. says,
     instead: sentences."""
 
@@ -388,8 +358,7 @@ class CauseFacts:
     numbers: tuple[NamedNumber, ...]
 
 
-@dataclass(frozen=True, slots=True)
-class NoteFacts:
+class NoteFacts(Struct, frozen=True):
     """What the reader must know about the numbers. note: fixed id."""
 
     note: str
@@ -397,8 +366,7 @@ class NoteFacts:
     says: str
 
 
-@dataclass(frozen=True, slots=True)
-class Review:
+class Review(Struct, frozen=True):
     """One review of one netlist under one condition."""
 
     schema: str

@@ -7,9 +7,9 @@ so that exact and simulated edges mean the same thing; where it does not, the sw
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass
 
 import numpy as np
+from msgspec import Struct
 from numpy.typing import NDArray
 
 from tauledger.network.midband import MidBand
@@ -25,8 +25,7 @@ REFINING_ROUNDS = 2
 RunSweep = Callable[[NDArray[np.float64]], Sweep]
 
 
-@dataclass(frozen=True, slots=True)
-class Simulated:
+class Simulated(Struct, frozen=True):
     """ngspice's answer: the sweep, its mid-band, and the first −3 dB crossings going outwards in Hz (None: none)."""
 
     sweep: Sweep

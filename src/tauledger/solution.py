@@ -3,30 +3,27 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
 
 import numpy as np
+from msgspec import Struct
 from numpy.typing import NDArray
 
 
-@dataclass(frozen=True, slots=True)
-class Observation:
+class Observation(Struct, frozen=True):
     """What a device family wants to know of one element: readings by ngspice's own parameter names."""
 
     element: str
     readings: tuple[str, ...]
 
 
-@dataclass(frozen=True, slots=True)
-class EngineIdentity:
+class EngineIdentity(Struct, frozen=True):
     """Which engine answered: its name and version, e.g. "ngspice", "39"."""
 
     name: str
     version: str
 
 
-@dataclass(frozen=True, slots=True)
-class Bias:
+class Bias(Struct, frozen=True):
     """The operating point.
 
     voltages: of every node in the circuit's order, V (n_nodes,). currents: through each voltage source and
@@ -44,8 +41,7 @@ class Bias:
     warnings: tuple[str, ...] = ()
 
 
-@dataclass(frozen=True, slots=True)
-class Sweep:
+class Sweep(Struct, frozen=True):
     """The engine's AC answer at the circuit's output: frequency in Hz (n_freq,), complex response (n_freq,)."""
 
     frequency_hz: NDArray[np.float64]

@@ -2,9 +2,8 @@
 
 from __future__ import annotations
 
-from dataclasses import fields
-
 import pytest
+from msgspec.structs import fields
 
 import boards
 from by_algebra import evidence

@@ -2,10 +2,9 @@
 
 from __future__ import annotations
 
-from dataclasses import replace
-
 import numpy as np
 import pytest
+from msgspec.structs import replace
 
 from circuits import NPN, PNP, board, changed
 from tauledger.circuit import Circuit, Model

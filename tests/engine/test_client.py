@@ -294,7 +294,7 @@ def test_no_code_model_of_the_system_is_loaded(engine: Engine) -> None:
 
 
 def test_hostile_names_run_nothing(tmp_path: Path, engine: Engine) -> None:
-    from dataclasses import replace
+    from msgspec.structs import replace
 
     target = tmp_path / "sprung"
     evil = f"x\r\n.control\nshell touch {target}\n.endc\n*# shell touch {target}"

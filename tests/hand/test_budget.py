@@ -8,7 +8,6 @@ from hypothesis import HealthCheck, assume, given, settings
 
 import boards
 import strategies
-import textbook
 from cells import bands_of, bipolar, board, near
 from tauledger.devices.family import Device
 from tauledger.devices.parts import capacitance, inductance, resistance, transcapacitance, voltage_source
@@ -85,7 +84,7 @@ def test_a_transcapacitance_is_in_the_exact_constant_and_not_in_the_hand_one() -
 
 
 def test_hand_and_exact_constants_differ_by_the_textbook_output_side_alone() -> None:
-    rows = signal_nodes(bands_of(textbook.two_common_source_stages()), ())
+    rows = signal_nodes(bands_of(boards.two_common_source_stages()), ())
     for row in rows:
         extra = sum(
             line.resistance.ohm * term.farad * (term.factor - 1.0)
@@ -98,7 +97,7 @@ def test_hand_and_exact_constants_differ_by_the_textbook_output_side_alone() -> 
 
 def test_six_time_constants_of_two_common_source_stages() -> None:
     """Gray, Hurst, Lewis and Meyer, 5th ed., sec. 7.3.3: 320, 315, 50, 100, 20 and 10 ns, together 815 ns."""
-    bands = bands_of(textbook.two_common_source_stages())
+    bands = bands_of(boards.two_common_source_stages())
     across = part_resistances(bands, ())
     tau = {name: across[name].ohm * bands.network.part(name).value for name in across}
     printed = {"M1.c_mu": 320, "M2.c_mu": 315, "M1.c_pi": 50, "M2.c_pi": 100, "Cdb1": 20, "Cdb2": 10}
@@ -108,7 +107,7 @@ def test_six_time_constants_of_two_common_source_stages() -> None:
 
 def test_resistance_across_the_feedback_capacitance_of_a_common_emitter() -> None:
     """Kumar and Jain, Electronic Devices and Circuits, Ex. 10.16: R' + R_L + gm·R'·R_L = 58 125 ohm."""
-    across = part_resistances(bands_of(textbook.common_emitter_600_ohm()), ())
+    across = part_resistances(bands_of(boards.common_emitter_600_ohm()), ())
     assert across["Q1.c_mu"].ohm == near(58125.0, rel=1e-9)
 
 

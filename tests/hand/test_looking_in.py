@@ -6,7 +6,7 @@ import pytest
 from hypothesis import given, settings
 
 import boards
-import textbook as networks
+import boards as networks
 from cells import bands_of, bipolar, board, circuit_of, near, trees
 from tauledger.devices.parts import Part, resistance, transconductance
 from tauledger.hand.equivalent import EquivalentCircuit, upper_circuit

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 
-import textbook
+import boards
 from cells import bands_of, bipolar, board, near
 from tauledger.devices.parts import capacitance, inductance, resistance
 from tauledger.hand.estimate import LowerRow
@@ -21,7 +21,7 @@ def test_three_capacitors_of_a_follower_and_a_common_source() -> None:
 
     The zero of the bypass, 1/(2π·150 ohm·5.3 uF), lies at 200.2 Hz.
     """
-    found = rows(textbook.follower_then_common_source_low_edge())
+    found = rows(boards.follower_then_common_source_low_edge())
     tau = {name: row.resistance.ohm * row.farad for name, row in found.items()}
     assert tau == near({"C1": 0.0502, "C2": 0.15, "C3": 0.000318}, rel=1e-9)
     assert sum(row.edge_hand_hz for row in found.values()) == near(504.72, rel=1e-5)
@@ -31,7 +31,7 @@ def test_three_capacitors_of_a_follower_and_a_common_source() -> None:
 
 def test_two_edges_designed_to_be_equal() -> None:
     """Kumar and Jain, Ex. 10.15: 25 Hz each for C_B and C_E; zero of C_E printed 0.26 Hz."""
-    found = rows(textbook.two_equal_low_edges())
+    found = rows(boards.two_equal_low_edges())
     assert found["CB"].edge_hand_hz == near(25.0, rel=1e-3)
     assert found["CE"].edge_hand_hz == near(25.0, rel=1e-3)
     assert found["CE"].zero_hz == near(0.26, rel=0.01)
@@ -42,7 +42,7 @@ def test_three_comparable_edges() -> None:
 
     The printed 419.6 Hz of the bypass has r_e without the base's source resistance taken exactly; the network 422.4 Hz.
     """
-    found = rows(textbook.three_low_edges())
+    found = rows(boards.three_low_edges())
     assert found["C1"].edge_hand_hz == near(1376.187, rel=1e-6)
     assert found["C3"].edge_hand_hz == near(230.6593, rel=1e-6)
     assert found["C2"].resistance.ohm == near(7.5361, rel=1e-4)
@@ -50,9 +50,9 @@ def test_three_comparable_edges() -> None:
 
 def test_rules_equal_the_exact_resistance_in_all_worked_examples() -> None:
     for make in (
-        textbook.follower_then_common_source_low_edge,
-        textbook.two_equal_low_edges,
-        textbook.three_low_edges,
+        boards.follower_then_common_source_low_edge,
+        boards.two_equal_low_edges,
+        boards.three_low_edges,
     ):
         for row in rows(make()).values():
             assert row.resistance.source == "rule"
@@ -61,14 +61,14 @@ def test_rules_equal_the_exact_resistance_in_all_worked_examples() -> None:
 
 
 def test_titles_say_what_a_capacitor_is_for() -> None:
-    found = rows(textbook.three_low_edges())
+    found = rows(boards.three_low_edges())
     assert found["C1"].title == "coupling into input of Q1 (b)"
     assert found["C2"].title == "bypass at common terminal of Q1 (e)"
     assert found["C3"].title == "coupling into output (out)"
 
 
 def test_parallel_capacitors_are_one_row() -> None:
-    network = textbook.network(
+    network = boards.driven(
         resistance("RS", "s", "a", 1e3),
         capacitance("C1", "a", "out", 1e-6),
         capacitance("C2", "out", "a", 2e-6),
@@ -140,6 +140,6 @@ def test_a_capacitor_without_which_the_gain_rises_is_decoupling() -> None:
 
 def test_a_large_coupling_capacitor_stays_in_the_path() -> None:
     """Its edge is a five-hundredth of the other's, and the signal goes through it all the same."""
-    found = rows(textbook.follower_then_common_source_low_edge())
+    found = rows(boards.follower_then_common_source_low_edge())
     assert found["C2"].edge_hand_hz < 0.003 * found["C3"].edge_hand_hz
     assert found["C2"].in_path

@@ -8,7 +8,6 @@ import pytest
 from hypothesis import given, settings
 
 import boards
-import textbook
 from cells import bands_of, bipolar, board, circuit_of, near, trees
 from tauledger.devices.family import Device
 from tauledger.devices.parts import Part, capacitance, resistance, transconductance
@@ -49,29 +48,29 @@ def test_input_capacitance_of_a_common_source_is_c_times_one_plus_a() -> None:
 
     Without the 1 it would be 35.25 pF, 1.4 % less.
     """
-    miller = term(row(textbook.common_source_400_mhz(), "g"), "M1.c_mu")
+    miller = term(row(boards.common_source_400_mhz(), "g"), "M1.c_mu")
     assert miller.farad * miller.factor == near(35.75e-12, rel=1e-3)
     assert miller.text == "K = −gm·RL = −14.1m·5k = −70.5"
 
 
 def test_the_gain_is_that_of_the_bridged_nodes_and_has_the_load_and_r_o_in_it() -> None:
     """Sedra and Smith, common-source example, from memory: C_in 4.26 pF; with the overall gain it would be 4.2 pF."""
-    node = row(textbook.common_source_100k(), "g")
+    node = row(boards.common_source_100k(), "g")
     assert node.capacitance_f == near(4.26e-12, rel=1e-3)
     assert term(node, "M1.c_mu").text == "K = −gm·(RD ‖ RL ‖ r_o) = −1m·7.14k = −7.14"
 
 
 def test_the_output_side_of_an_inverting_stage_has_one_plus_one_over_a() -> None:
-    miller = term(row(textbook.common_source_100k(), "out"), "M1.c_mu")
+    miller = term(row(boards.common_source_100k(), "out"), "M1.c_mu")
     assert miller.factor == near(1.0 + 7.0 / 50.0, rel=1e-6)
     assert miller.text.startswith("1 + 1/|A|")
 
 
 def test_below_a_gain_of_one_the_output_side_keeps_one_minus_k() -> None:
     """C·(1 − 1/K) would be 1 + 5 = 6 times the capacitance at a gain of −0.2."""
-    network = textbook.network(
+    network = boards.driven(
         resistance("RS", "s", "g", 1e3),
-        textbook.transistor("M1", ("g", "out", "0"), 0.2e-3, c_pi=10e-12, c_mu=1e-12),
+        boards.stage("M1", "g", "out", "0", 0.2e-3, c_pi=10e-12, c_mu=1e-12),
         resistance("RL", "out", "0", 1e3),
         capacitance("CL", "out", "0", 10e-12),
     )
@@ -81,14 +80,14 @@ def test_below_a_gain_of_one_the_output_side_keeps_one_minus_k() -> None:
 
 def test_a_follower_bootstraps_its_base_capacitance() -> None:
     """Gray, Hurst, Lewis and Meyer, 5th ed., sec. 7.2.3.1, second example: 10 pF acts as 0.13 pF (0.128 computed)."""
-    miller = term(row(textbook.emitter_follower(), "b"), "Q1.c_pi")
+    miller = term(row(boards.emitter_follower(), "b"), "Q1.c_pi")
     assert miller.farad * miller.factor == near(0.1283e-12, rel=0.01)
     assert miller.gain.real > 0.98
 
 
 def test_zero_value_constant_of_the_follower_comes_out_of_both_sides() -> None:
     """Gray, Hurst, Lewis and Meyer, 5th ed., sec. 7.2.3.1: R_pi0 printed 28 ohm, 27.93 computed; 10 pF."""
-    bands = bands_of(textbook.emitter_follower())
+    bands = bands_of(boards.emitter_follower())
     assert part_resistances(bands, ())["Q1.c_pi"].ohm == near(27.93, rel=1e-3)
     assert sum(node.time_constant_s for node in signal_nodes(bands, ())) == near(279.3e-12, rel=1e-3)
 
@@ -169,9 +168,9 @@ def test_degeneration_divides_the_gain_and_is_written_so() -> None:
     R_G 5 kohm, R_S 500 ohm, R_D 10 kohm, gm 4 mA/V: 81 667 ohm; R_gs = (R_S + R_G)/(1 + gm·R_S) = 1833.3 ohm.
     """
     bands = bands_of(
-        textbook.network(
+        boards.driven(
             resistance("RG", "s", "g", 5e3),
-            textbook.transistor("M1", ("g", "out", "x"), 4e-3, c_pi=100e-15, c_mu=20e-15),
+            boards.stage("M1", "g", "out", "x", 4e-3, c_pi=100e-15, c_mu=20e-15),
             resistance("RS", "x", "0", 500.0),
             resistance("RD", "out", "0", 10e3),
             capacitance("CL", "out", "0", 30e-15),
@@ -185,13 +184,13 @@ def test_degeneration_divides_the_gain_and_is_written_so() -> None:
 
 
 def test_the_other_end_at_ground_counts_once() -> None:
-    miller = term(row(textbook.common_source_400_mhz(), "g"), "M1.c_pi")
+    miller = term(row(boards.common_source_400_mhz(), "g"), "M1.c_pi")
     assert (miller.factor, miller.gain, miller.text) == (1.0, 0j, "")
 
 
 def test_to_a_driven_node_counts_once_and_the_far_end_has_no_row() -> None:
-    network = textbook.network(
-        textbook.transistor("M1", ("s", "out", "0"), 2e-3, c_pi=1e-12, c_mu=0.5e-12),
+    network = boards.driven(
+        boards.stage("M1", "s", "out", "0", 2e-3, c_pi=1e-12, c_mu=0.5e-12),
         resistance("RL", "out", "0", 10e3),
     )
     nodes = signal_nodes(bands_of(network), ())

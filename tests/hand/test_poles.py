@@ -42,7 +42,7 @@ def test_second_pole_is_b1_over_b2_kumar_and_jain_10_7() -> None:
     first, second = above(boards.common_emitter_1ma())
     assert hz(second) / hz(first) == pytest.approx(49.49, rel=2e-4)
     assert second.pole.real / first.pole.real == pytest.approx(47.472, rel=1e-4)
-    assert (first.formula, second.formula) == ("1/b1/2π", "b1/b2/2π")
+    assert (first.formula, second.formula) == ("1/(2π·b1)", "b1/(2π·b2)")
 
 
 def test_second_pole_of_two_stages_kumar_and_jain_10_12() -> None:
@@ -78,7 +78,7 @@ def test_source_follower_has_a_pair_cjm_4_16() -> None:
     f0, q = pair_frequency_and_q(pair.pole)
     assert hz(pair) == pytest.approx(f0)
     assert pair.q == pytest.approx(q)
-    assert pair.formula == "f0 = 1/√b2/2π, Q = √b2/b1 = 0.549"
+    assert pair.formula == "f0 = 1/(2π·√b2), Q = √b2/b1 = 0.549"
 
 
 def test_close_real_poles_are_roots_of_the_quadratic() -> None:
@@ -96,20 +96,20 @@ def test_three_equal_poles_have_no_second_pole_in_two_coefficients() -> None:
     found = hand_poles(poles, poles[:0], midband_hz=0.0, upper=coefficients(poles), lower=None)
     assert coefficients(poles).separation == pytest.approx(3.0)
     assert len(found) == 3
-    assert {pole.formula for pole in found} <= {"1/b1/2π", ""}
+    assert {pole.formula for pole in found} <= {"1/(2π·b1)", ""}
 
 
 def test_a_cancelled_pole_has_no_formula_and_takes_none_away() -> None:
     poles = np.array([-2e4, -1e7, -1e9], dtype=complex)
     found = hand_poles(poles, poles[:1], midband_hz=0.0, upper=coefficients(poles[1:]), lower=None)
-    assert [pole.formula for pole in found] == ["", "1/b1/2π", "b1/b2/2π"]
+    assert [pole.formula for pole in found] == ["", "1/(2π·b1)", "b1/(2π·b2)"]
 
 
 def test_low_poles_have_the_same_formulas_turned_round() -> None:
     """Kumar and Jain, Ex. 10.15: both capacitors at 25 Hz, their sum a1 = 49.99 Hz is the pole at 49.86 Hz."""
     second, first = below(boards.two_equal_low_edges())
     assert hz(first) == pytest.approx(49.99, rel=1e-4)
-    assert (first.formula, second.formula) == ("a1/2π", "a2/a1/2π")
+    assert (first.formula, second.formula) == ("a1/2π", "a2/(2π·a1)")
     assert hz(second) == pytest.approx(0.13096, rel=5e-3)
 
 
@@ -117,14 +117,14 @@ def test_poles_on_both_sides_of_mid_band_get_their_own_coefficients() -> None:
     poles = np.array([-2 * math.pi * 5, -2 * math.pi * 100, -2 * math.pi * 1e6, -2 * math.pi * 5e7], dtype=complex)
     upper, low = coefficients(poles[2:]), coefficients(np.reciprocal(poles[:2]))
     found = hand_poles(poles, poles[:0], midband_hz=1e4, upper=upper, lower=Coefficients(low.b1, low.b2))
-    assert [pole.formula for pole in found] == ["a2/a1/2π", "a1/2π", "1/b1/2π", "b1/b2/2π"]
+    assert [pole.formula for pole in found] == ["a2/(2π·a1)", "a1/2π", "1/(2π·b1)", "b1/(2π·b2)"]
     assert [hz(pole) for pole in found] == pytest.approx([4.76, 105, 0.98e6, 51e6], rel=1e-2)
 
 
 def test_dominant_pole_before_a_pair_gets_the_sum_alone() -> None:
     poles = np.array([-1.0, -30 + 40j, -30 - 40j], dtype=complex)
     dominant, pair = hand_poles(poles, poles[:0], midband_hz=0.0, upper=coefficients(poles), lower=None)
-    assert dominant.formula == "1/b1/2π"
+    assert dominant.formula == "1/(2π·b1)"
     assert (pair.hz, pair.q) == (None, None)
 
 

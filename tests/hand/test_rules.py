@@ -3,9 +3,9 @@
 from __future__ import annotations
 
 import math
-from dataclasses import replace
 
 import pytest
+from msgspec.structs import replace
 
 from cells import circuit_of, near
 from tauledger.devices.parts import Part, resistance, transconductance

@@ -7,7 +7,6 @@ import math
 import pytest
 
 import boards
-import textbook
 from cells import bands_of, bipolar, board, near
 from tauledger.circuit import Port
 from tauledger.devices.parts import current_source, resistance
@@ -16,11 +15,11 @@ from tauledger.network.assemble import Network
 
 CHAINS = [
     boards.cascode,
-    textbook.two_common_source_stages,
-    textbook.two_common_emitter_stages,
-    textbook.emitter_follower,
-    textbook.common_gate,
-    textbook.follower_then_common_source_low_edge,
+    boards.two_common_source_stages,
+    boards.two_common_emitter_stages,
+    boards.emitter_follower,
+    boards.common_gate,
+    boards.follower_then_common_source_low_edge,
 ]
 
 
@@ -79,7 +78,7 @@ def test_from_a_current_source_the_first_gain_is_in_ohm() -> None:
         [
             current_source("IS", "0", "b", 1.0),
             resistance("RB", "b", "0", 1e3),
-            *textbook.transistor("Q1", ("b", "out", "0"), 0.04, r_pi=3750.0),
+            *boards.stage("Q1", "b", "out", "0", 0.04, r_pi=3750.0),
             resistance("RL", "out", "0", 2e3),
         ],
         output=Port("out"),
@@ -90,7 +89,7 @@ def test_from_a_current_source_the_first_gain_is_in_ohm() -> None:
 
 
 def test_a_stage_driven_directly_has_its_whole_gain_in_the_first_row() -> None:
-    network = textbook.network(*[textbook.transistor("Q1", ("s", "out", "0"), 0.04)], resistance("RL", "out", "0", 2e3))
+    network = boards.driven(*[boards.stage("Q1", "s", "out", "0", 0.04)], resistance("RL", "out", "0", 2e3))
     (row,) = stage_rows(bands_of(network), ())
     assert row.gain_hand == near(-80.0)
     assert row.gain_exact == near(-80.0)

@@ -7,10 +7,10 @@ by the definition of the step (poles by eigenvalues, checked against an AC run o
 from __future__ import annotations
 
 import math
-from dataclasses import replace
 
 import numpy as np
 import pytest
+from msgspec.structs import replace
 
 import boards
 from by_algebra import capacitor_rows, evidence, plain_capacitor, plain_node, roots, signal_nodes

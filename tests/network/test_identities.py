@@ -2,11 +2,10 @@
 
 from __future__ import annotations
 
-from dataclasses import replace
-
 import numpy as np
 import pytest
 from hypothesis import given, settings
+from msgspec.structs import replace
 
 from strategies import networks
 from tauledger.errors import NetworkError

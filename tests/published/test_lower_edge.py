@@ -6,7 +6,7 @@ import math
 
 import pytest
 
-import textbook
+import boards
 from tauledger.pipeline import review_network
 from tauledger.record import PartRow, Review
 
@@ -27,7 +27,7 @@ def test_bypass_zero_makes_the_short_circuit_sum_too_high_kumar_and_jain_10_20()
     With the zero of the source bypass, 1/(2 pi R_S2 C_3) = 200 Hz, the -3 dB edge is sqrt(p^2 - 2 z^2) = 413 Hz
     (root of squares, Sedra and Smith 8e, sec. 10.3.2).
     """
-    review = review_network(textbook.follower_then_common_source_low_edge())
+    review = review_network(boards.follower_then_common_source_low_edge())
     for name, seconds in {"C1": 0.0502, "C2": 0.150, "C3": 0.000318}.items():
         assert part(review, name).time_constant_s == pytest.approx(seconds, rel=1e-6, abs=0), name
     assert review.budget.lower is not None
@@ -40,7 +40,7 @@ def test_bypass_zero_makes_the_short_circuit_sum_too_high_kumar_and_jain_10_20()
 
 def test_two_equal_constants_interact_kumar_and_jain_10_15() -> None:
     """Kumar and Jain, Ex. 10.15: C_B and C_E designed for 25 Hz each, f_L 50 Hz, zero of C_E 0.26 Hz."""
-    review = review_network(textbook.two_equal_low_edges())
+    review = review_network(boards.two_equal_low_edges())
     assert part(review, "CB").edge_hz == pytest.approx(25, rel=1e-3, abs=0)
     assert part(review, "CE").edge_hz == pytest.approx(25, rel=1e-3, abs=0)
     assert part(review, "CE").zero_hz == pytest.approx(0.26, rel=1e-2, abs=0)
@@ -52,7 +52,7 @@ def test_three_comparable_edges_need_more_than_the_highest() -> None:
 
     The printed bypass edge neglects R_E in parallel, 0.7 %.
     """
-    review = review_network(textbook.three_low_edges())
+    review = review_network(boards.three_low_edges())
     for name, hz, precision in (("C1", 1376.0, 1e-3), ("C2", 419.6, 1e-2), ("C3", 230.7, 1e-3)):
         assert part(review, name).edge_hz == pytest.approx(hz, rel=precision, abs=0), name
     assert review.budget.lower is not None

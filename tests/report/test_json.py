@@ -4,12 +4,13 @@ from __future__ import annotations
 
 import json
 import math
-from dataclasses import fields, is_dataclass, replace
 from importlib.resources import files
 from typing import Any
 
 import jsonschema
 import pytest
+from msgspec import Struct
+from msgspec.structs import fields, replace
 
 from report.literal import ECHO_PREAMP
 from tauledger.record import SCHEMA, Review
@@ -46,8 +47,8 @@ def test_a_reader_may_meet_fields_that_it_does_not_know() -> None:
 
 def test_every_field_of_the_records_is_in_the_document_in_their_order() -> None:
     def same(record: Any, told: Any) -> None:
-        if is_dataclass(record):
-            names = ["class" if field.name == "klass" else field.name for field in fields(record)]
+        if isinstance(record, Struct):
+            names = [field.encode_name for field in fields(record)]
             assert list(told) == names
             for field, name in zip(fields(record), names, strict=True):
                 same(getattr(record, field.name), told[name])

@@ -4,10 +4,10 @@ from __future__ import annotations
 
 import math
 import re
-from dataclasses import replace
 from pathlib import Path
 
 import pytest
+from msgspec.structs import replace
 
 from report.literal import ECHO_PREAMP
 from tauledger.record import (
@@ -102,7 +102,7 @@ def test_agreement_above_1e_3_says_what_is_left_out_and_why(error: float) -> Non
 def no_plateau() -> Review:
     midband = MidbandFacts(2.1e3, None, None, -30.0, 12.0, 30.19, "V/V")
     working = {"nodes": (), "steps": (), "estimates": (), "causes": (), "budget": Budget(None, None)}
-    return replace(ECHO_PREAMP, midband=midband, **working)  # type: ignore[arg-type]
+    return replace(ECHO_PREAMP, midband=midband, **working)
 
 
 def test_without_a_plateau_the_hand_tables_are_said_to_be_left_out() -> None:

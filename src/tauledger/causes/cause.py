@@ -2,16 +2,16 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
 from typing import Literal
+
+from msgspec import Struct
 
 from tauledger.record import CauseFacts, NamedNumber, NoteFacts
 
 Quantity = Literal["f_H", "f_L"]
 
 
-@dataclass(frozen=True, slots=True)
-class Cause:
+class Cause(Struct, frozen=True):
     """One reason why hand and simulation differ.
 
     cause: fixed id. quantity: which band edge. effect: fraction by which it moves that edge, as the cause defines it.
@@ -28,8 +28,7 @@ class Cause:
     numbers: tuple[NamedNumber, ...] = ()
 
 
-@dataclass(frozen=True, slots=True)
-class Note:
+class Note(Struct, frozen=True):
     """What the reader must know about the numbers. note: fixed id. where: part, device or edge, empty for the whole."""
 
     note: str

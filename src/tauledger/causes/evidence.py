@@ -3,7 +3,8 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+
+from msgspec import Struct
 
 from tauledger.causes.cause import Quantity
 from tauledger.devices.family import Device
@@ -16,8 +17,7 @@ from tauledger.network.solve import Complex
 from tauledger.quantity import engineering
 
 
-@dataclass(frozen=True, slots=True)
-class EdgeEvidence:
+class EdgeEvidence(Struct, frozen=True):
     """One band edge.
 
     hz: exact, None where there is none. slope: d ln|H| / d ln f there. combined, steps: None and empty where the hand
@@ -36,8 +36,7 @@ class EdgeEvidence:
         return "f_H" if self.edge == "f_high" else "f_L"
 
 
-@dataclass(frozen=True, slots=True)
-class Evidence:
+class Evidence(Struct, frozen=True):
     """One reviewed network.
 
     poles, zeros: of the full network in rad/s (n,), (m,). devices: empty where the network was not read from a netlist.

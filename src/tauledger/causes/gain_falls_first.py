@@ -2,9 +2,8 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-
 import numpy as np
+from msgspec import Struct
 
 from tauledger.causes.cause import Cause
 from tauledger.causes.evidence import (
@@ -24,8 +23,7 @@ from tauledger.network.solve import admittance
 from tauledger.record import NamedNumber
 
 
-@dataclass(frozen=True, slots=True)
-class _Fallen:
+class _Fallen(Struct, frozen=True):
     """A Miller term whose factor |1 − K| at the pole that it makes by hand is less than half of that at mid-band."""
 
     row: SignalNode
@@ -83,7 +81,7 @@ def _fallen(evidence: Evidence, row: SignalNode) -> list[_Fallen]:
 def _gain(evidence: Evidence, line: InnerLine, term: MillerTerm, omega: float) -> complex | None:
     """Give K = Z_ji/Z_ii at jω, driven from the line's node to the capacitance's other end; None where grounded."""
     upper, merged = evidence.bands.upper, evidence.bands.merged
-    here = merged.get(line.node, line.node)
+    here = line.at
     ends = {merged.get(node, node) for node in evidence.bands.network.part(term.part).nodes}
     other = ends - {here, GROUND}
     if here not in ends or len(other) != 1:

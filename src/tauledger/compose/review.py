@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 import math
-from importlib.metadata import version
 
+from tauledger import __version__
 from tauledger.causes.cause import cause_facts, note_facts
 from tauledger.compose.rows import budget_facts, node_rows, part_rows, pole_facts, zero_facts
 from tauledger.compose.setting import cautions, curves, device_facts, drive_facts, output_facts, source_lines, unit_of
@@ -45,7 +45,7 @@ def compose(numbers: Numbers, explanation: Explanation, *, netlist: Netlist | No
     high, low = _edge_facts("f_high", numbers, explanation), _edge_facts("f_low", numbers, explanation)
     return Review(
         schema=SCHEMA,
-        tauledger=version("tauledger"),
+        tauledger=__version__,
         engine=EngineFacts(numbers.bias.engine.name, numbers.bias.engine.version) if numbers.bias else None,
         netlist=_netlist_facts(netlist, title),
         temperature_c=numbers.circuit.temperature_c if numbers.circuit else 27.0,

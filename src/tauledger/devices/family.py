@@ -8,15 +8,15 @@ and the figures of its operating point; nothing downstream knows which family a 
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass
+
+from msgspec import Struct
 
 from tauledger.circuit import Circuit, Element, Model
 from tauledger.devices.parts import Part
 from tauledger.solution import Bias, Observation
 
 
-@dataclass(frozen=True, slots=True)
-class Transconductor:
+class Transconductor(Struct, frozen=True):
     """The hand model of one transistor: a current gm·v(control, common) from output to common, with r_pi and r_o.
 
     control, common, output: nodes of the network, the inner ones where series resistances exist.
@@ -35,8 +35,7 @@ class Transconductor:
     g_mb: float = 0.0
 
 
-@dataclass(frozen=True, slots=True)
-class Terminal:
+class Terminal(Struct, frozen=True):
     """One terminal of a device: its word ("base"), the netlist's node, and the inner node behind its series
     resistance.
 
@@ -48,8 +47,7 @@ class Terminal:
     inner: str
 
 
-@dataclass(frozen=True, slots=True)
-class Device:
+class Device(Struct, frozen=True):
     """One transistor (or diode) as linearised at its operating point.
 
     kind: "npn", "pnp", … region: in whole words ("active", "saturated", "off", "reversed").
@@ -68,8 +66,7 @@ class Device:
     without_charge: bool = False
 
 
-@dataclass(frozen=True, slots=True)
-class Refusal:
+class Refusal(Struct, frozen=True):
     """Why an element or its model cannot be rebuilt, and what would help; `parameter` names the culprit on the
     model card."""
 
@@ -78,8 +75,7 @@ class Refusal:
     hint: str = ""
 
 
-@dataclass(frozen=True, slots=True)
-class Family:
+class Family(Struct, frozen=True):
     """One device family, as its file in devices/ describes it.
 
     letter: element letter. model_types: types of `.model` that belong to it, e.g. ("npn", "pnp"), empty without
@@ -105,8 +101,7 @@ class Family:
     model_parameters: frozenset[str] = frozenset()
 
 
-@dataclass(frozen=True, slots=True)
-class Linearised:
+class Linearised(Struct, frozen=True):
     """The whole circuit linearised at its operating point: every part of the network, and the devices among
     them."""
 

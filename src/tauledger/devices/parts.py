@@ -10,8 +10,9 @@ current flows from a through the source to b. A current source pushes its curren
 
 from __future__ import annotations
 
-from dataclasses import dataclass
 from typing import Literal
+
+from msgspec import Struct
 
 PartKind = Literal[
     "conductance",
@@ -24,8 +25,7 @@ PartKind = Literal[
 ]
 
 
-@dataclass(frozen=True, slots=True)
-class Part:
+class Part(Struct, frozen=True):
     """One primitive: who it belongs to ("Q1"), what it is there ("c_mu", empty for a plain card), where and how
     much.
 

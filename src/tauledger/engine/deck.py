@@ -8,7 +8,8 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterable, Mapping
-from dataclasses import dataclass
+
+from msgspec import Struct
 
 from tauledger.circuit import Circuit, Element, Model, fold
 from tauledger.devices.catalogue import FAMILIES, family_of
@@ -21,8 +22,7 @@ OPTIONS = {"gmin": 1e-12}
 WITH_BRANCH_CURRENT = ("V", "L")
 
 
-@dataclass(frozen=True, slots=True)
-class Deck:
+class Deck(Struct, frozen=True):
     """A deck and its names.
 
     text: the deck, one card a line. nodes: generated name per node of the circuit; "0" is ground. elements: generated

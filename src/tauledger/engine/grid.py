@@ -3,9 +3,9 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
 
 import numpy as np
+from msgspec import Struct
 from numpy.typing import NDArray
 
 GRID_TOLERANCE = 1e-9
@@ -14,8 +14,7 @@ GRID_TOLERANCE = 1e-9
 STOP_MARGIN = 1e-13
 
 
-@dataclass(frozen=True, slots=True)
-class Grid:
+class Grid(Struct, frozen=True):
     """One AC run: `points` per decade from start to stop; points = 0 asks for the single frequency `start_hz`."""
 
     points: int

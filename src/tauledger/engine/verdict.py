@@ -8,8 +8,9 @@ from __future__ import annotations
 
 import re
 from collections.abc import Iterable, Mapping
-from dataclasses import dataclass
 from typing import Literal
+
+from msgspec import Struct
 
 State = Literal["sound", "stepped", "failed", "singular", "rejected", "dead"]
 
@@ -35,8 +36,7 @@ _INNER = {
 }
 
 
-@dataclass(frozen=True, slots=True)
-class Verdict:
+class Verdict(Struct, frozen=True):
     """The class of a run; says: the engine's lines worth telling; nodes: those it could not solve, user's names."""
 
     state: State

@@ -7,7 +7,9 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass, field, replace
+
+from msgspec import Struct, field
+from msgspec.structs import replace
 
 from tauledger.circuit import GROUND
 from tauledger.hand.elements import Cell
@@ -33,8 +35,7 @@ PRINTED_DEPTH = 2
 Element = tuple[str, int]
 
 
-@dataclass(frozen=True, slots=True)
-class Seen:
+class Seen(Struct, frozen=True):
     """A resistance in ohm and how it is written; `terms` of it stand in parallel or series without brackets."""
 
     ohm: float
@@ -42,8 +43,7 @@ class Seen:
     terms: int = 1
 
 
-@dataclass(frozen=True, slots=True)
-class Branch:
+class Branch(Struct, frozen=True):
     """One of the branches in parallel at a node.
 
     ohm: its resistance to AC ground. symbol: how it is written. detail: the working of a cell's rule, or empty.
@@ -58,8 +58,7 @@ class Branch:
     link_ohm: float | None = None
 
 
-@dataclass(slots=True)
-class Walk:
+class Walk(Struct):
     """One look into a circuit: nodes that end a branch, the cell whose gm is taken as 0, and visits left."""
 
     ends: frozenset[str] = frozenset({GROUND})
@@ -120,8 +119,7 @@ def branches(circuit: EquivalentCircuit, node: str, without: frozenset[Element],
     return [*passive, *found]
 
 
-@dataclass(frozen=True, slots=True)
-class Joint:
+class Joint(Struct, frozen=True):
     """Where a transistor's control and output meet outside its series resistances r_b and r_c, ohm."""
 
     node: str

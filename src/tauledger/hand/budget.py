@@ -119,6 +119,7 @@ def _node_line(circuit: EquivalentCircuit, node: str) -> InnerLine:
     farad = sum(term.farad * term.factor for term in terms)
     return InnerLine(
         node=name,
+        at=node,
         resistance=resistance,
         resistance_exact_ohm=circuit.z(node, node),
         capacitances=terms,

@@ -9,9 +9,9 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
 
 import numpy as np
+from msgspec import Struct
 from numpy.typing import NDArray
 
 from tauledger.hand.estimate import LowerRow, SignalNode
@@ -25,8 +25,7 @@ HALF_POWER = 0.5 * math.log(2.0)
 POINTS_PER_DECADE = 60
 
 
-@dataclass(frozen=True, slots=True)
-class Coefficients:
+class Coefficients(Struct, frozen=True):
     """The first two coefficients of the denominator 1 + b1·s + b2·s², in s and s² (rad/s and its square for a1, a2)."""
 
     b1: float
@@ -43,8 +42,7 @@ class Coefficients:
         return math.sqrt(self.b2) / self.b1 if self.b1 > 0 and self.b2 > 0 else None
 
 
-@dataclass(frozen=True, slots=True)
-class Roots:
+class Roots(Struct, frozen=True):
     """Poles and zeros in rad/s that are seen between input and output, sorted by magnitude, and the pairs that cancel.
 
     poles (n,), zeros (m,), cancelled (k,): the poles that have a zero within 2 % of themselves.
@@ -55,8 +53,7 @@ class Roots:
     cancelled: Complex
 
 
-@dataclass(frozen=True, slots=True)
-class Combined:
+class Combined(Struct, frozen=True):
     """One band edge from the same network in every classical way, in Hz; None where that way gives no −3 dB frequency.
 
     lowest: the dominant time constant alone. all_nodes: all of them as separate real poles. exact_constants: the same

@@ -8,7 +8,9 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterable, Mapping
-from dataclasses import dataclass, replace
+
+from msgspec import Struct
+from msgspec.structs import replace
 
 from tauledger.circuit import GROUND
 from tauledger.devices.family import Device
@@ -20,8 +22,7 @@ WITHOUT_SIGNAL = ("substrate", "body")
 LONE_WORDS = ("input", "common terminal", "output")
 
 
-@dataclass(frozen=True, slots=True)
-class Resistor:
+class Resistor(Struct, frozen=True):
     """One resistor between two hand nodes, ohm; parallel ones between live nodes are taken together."""
 
     name: str
@@ -34,8 +35,7 @@ class Resistor:
         return self.b if node == self.a else self.a
 
 
-@dataclass(frozen=True, slots=True)
-class Cell:
+class Cell(Struct, frozen=True):
     """One transconductor between hand nodes: gm·v(control, common) flows from output to common.
 
     gm, g_mb in S; r_pi, r_o in ohm, infinite where there is none. body: node of the second control, or None.
@@ -69,8 +69,7 @@ class Cell:
         return self.control == self.output
 
 
-@dataclass(frozen=True, slots=True)
-class Capacitor:
+class Capacitor(Struct, frozen=True):
     """One open capacitance between hand nodes; `part` is its name, farad its value."""
 
     part: str
@@ -79,8 +78,7 @@ class Capacitor:
     farad: float
 
 
-@dataclass(frozen=True, slots=True)
-class TerminalAt:
+class TerminalAt(Struct, frozen=True):
     """A device terminal in the hand circuit: its word, and the hand nodes of its outer and inner end."""
 
     owner: str
@@ -179,6 +177,10 @@ def _inside(part: Part, cell: Cell, terminal: str, label: str, hand: Mapping[str
 
 
 def read_resistors(network: Network, hand: Mapping[str, str], used: set[str]) -> tuple[Resistor, ...]:
+    """Give every resistor of the network between hand nodes, those between the same two nodes taken together.
+
+    used: names of the parts that belong to a cell already.
+    """
     grouped: dict[tuple[str, str], list[tuple[str, float]]] = {}
     resistors: list[Resistor] = []
     for part in network.parts:
@@ -209,6 +211,10 @@ def _resistor_name(part: Part) -> str:
 def read_terminals(
     at: Mapping[str, str], devices: tuple[Device, ...], cells: tuple[Cell, ...], whole: Network
 ) -> tuple[TerminalAt, ...]:
+    """Give every terminal of the devices and of the lone cells with the hand nodes of its outer and inner end.
+
+    at: hand node by node of the network.
+    """
     found = [
         TerminalAt(device.name, t.word, at.get(t.outer, GROUND), at.get(t.inner, GROUND), t.outer)
         for device in devices

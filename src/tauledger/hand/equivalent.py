@@ -9,9 +9,10 @@ from __future__ import annotations
 
 import math
 from collections.abc import Collection, Mapping
-from dataclasses import dataclass, field, replace
 
 import numpy as np
+from msgspec import Struct
+from msgspec.structs import replace
 from numpy.typing import NDArray
 
 from tauledger.circuit import GROUND
@@ -31,8 +32,7 @@ from tauledger.network.assemble import Network
 from tauledger.network.bands import Bands
 
 
-@dataclass(frozen=True, slots=True)
-class EquivalentCircuit:
+class EquivalentCircuit(Struct, frozen=True):
     """Resistors, cells and open capacitances between hand nodes, and the exact matrices on the same nodes.
 
     at: every node of the whole network → its hand node, "0" for ground, supplies and driven nodes. driven: those
@@ -61,9 +61,9 @@ class EquivalentCircuit:
     constant: NDArray[np.float64]
     moment: NDArray[np.complex128]
     floating: frozenset[str]
-    row: Mapping[str, int] = field(repr=False)
-    resistors_at: Mapping[str, tuple[int, ...]] = field(repr=False)
-    cells_at: Mapping[str, tuple[int, ...]] = field(repr=False)
+    row: Mapping[str, int]
+    resistors_at: Mapping[str, tuple[int, ...]]
+    cells_at: Mapping[str, tuple[int, ...]]
 
     @property
     def output_hand(self) -> tuple[str, str]:
@@ -183,8 +183,7 @@ def equivalent_circuit(
     )
 
 
-@dataclass(frozen=True, slots=True)
-class _Solved:
+class _Solved(Struct, frozen=True):
     impedance: NDArray[np.float64]
     full_voltage: NDArray[np.complex128]
     voltage: NDArray[np.complex128]

@@ -3,15 +3,15 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
 from typing import Literal
+
+from msgspec import Struct
 
 WorkingSource = Literal["rule", "loop", "branch", "solved"]
 Edge = Literal["f_high", "f_low"]
 
 
-@dataclass(frozen=True, slots=True)
-class Resistance:
+class Resistance(Struct, frozen=True):
     """One of the resistances in parallel: a part's name ("RC") or a looking-in phrase ("into base of Q1"), in
     ohm."""
 
@@ -19,8 +19,7 @@ class Resistance:
     ohm: float
 
 
-@dataclass(frozen=True, slots=True)
-class MillerTerm:
+class MillerTerm(Struct, frozen=True):
     """One capacitance at a node: it counts as farad·factor there; `gain` is K from this node to its other end.
 
     text: the line for K as written on paper, empty where the other end is at AC ground. source: "rule", or "solved"
@@ -35,8 +34,7 @@ class MillerTerm:
     source: WorkingSource = "rule"
 
 
-@dataclass(frozen=True, slots=True)
-class LookingIn:
+class LookingIn(Struct, frozen=True):
     """A driving-point resistance by hand, worked.
 
     ohm: the value used. rule: name of the rule or form. text: the line as written on paper. source: where `ohm`
@@ -53,12 +51,14 @@ class LookingIn:
     rule_ohm: float | None = None
 
 
-@dataclass(frozen=True, slots=True)
-class InnerLine:
-    """One netlist or inner node of a signal node's row: its own looking-in resistance, Miller terms and exact
-    values."""
+class InnerLine(Struct, frozen=True):
+    """One netlist or inner node of a signal node's row: its own looking-in resistance, Miller terms and exact values.
+
+    node: as it is called on paper. at: its node in the upper network.
+    """
 
     node: str
+    at: str
     resistance: LookingIn
     resistance_exact_ohm: float
     capacitances: tuple[MillerTerm, ...]
@@ -67,20 +67,17 @@ class InnerLine:
     time_constant_exact_s: float
 
 
-@dataclass(frozen=True, slots=True)
-class SignalNode:
+class SignalNode(Struct, frozen=True):
     """One row of the upper budget: nodes joined by mid-band shorts, with the devices' inner nodes folded in.
 
-    name: the netlist's node (unique; "(inside Q2)" appended where two rows would share one). title: "base of Q1
-    (b)".
-    role: what the node is ("base", "collector", "output", …). members: all network nodes in it, inner ones
-    included.
-    crossing: ρ = x·λ/(Z_nn·H), the relative gain lost if the node is shorted. moment: its signed fraction of b1
-    − a1.
+    name: the netlist's node (unique; "(inside Q2)" appended where two rows would share one).
+    title: "base of Q1 (b)". role: what the node is ("base", "collector", "output", …).
+    members: all network nodes in it, inner ones included.
+    crossing: ρ = x·λ/(Z_nn·H), the relative gain lost if the node is shorted. moment: its signed
+    fraction of Σ|w·τ|.
     in_path: the row counts. lines: one per node that carries capacitance, the dominant one first.
-    resistance_hand_ohm, resistance_exact_ohm: of the dominant node. time_constant_s (hand) and
-    time_constant_exact_s: sums.
-    capacitance_f = time_constant_s / resistance_hand_ohm.
+    resistance_hand_ohm, resistance_exact_ohm: of the dominant node.
+    time_constant_s (hand), time_constant_exact_s: sums over the lines. capacitance_f = time_constant_s / resistance_hand_ohm.
     """
 
     name: str
@@ -99,8 +96,7 @@ class SignalNode:
     time_constant_exact_s: float
 
 
-@dataclass(frozen=True, slots=True)
-class LowerRow:
+class LowerRow(Struct, frozen=True):
     """One coupling or bypass capacitor (parallel ones taken together): hand and exact resistance, edge and zero,
     Hz.
 
@@ -120,8 +116,7 @@ class LowerRow:
     in_path: bool
 
 
-@dataclass(frozen=True, slots=True)
-class StageRow:
+class StageRow(Struct, frozen=True):
     """One node that all signal crosses, in signal order, with hand and exact gain from the one before."""
 
     node: str
@@ -133,8 +128,7 @@ class StageRow:
     elements: tuple[str, ...]
 
 
-@dataclass(frozen=True, slots=True)
-class StepEstimate:
+class StepEstimate(Struct, frozen=True):
     """The estimate of one edge after one step of the way from paper to the full network; hz is None where there
     is no crossing.
 
@@ -148,8 +142,7 @@ class StepEstimate:
     why: str
 
 
-@dataclass(frozen=True, slots=True)
-class MethodEstimate:
+class MethodEstimate(Struct, frozen=True):
     """One classical method's answer for one edge, e.g. "sum of time constants"."""
 
     edge: Edge
@@ -158,8 +151,7 @@ class MethodEstimate:
     recommended: bool = False
 
 
-@dataclass(frozen=True, slots=True)
-class HandEstimate:
+class HandEstimate(Struct, frozen=True):
     """All of the hand side.
 
     part_resistance: hand resistance across each open capacitance, by part name. sigma: b2 / Σ τ_i τ_j over the

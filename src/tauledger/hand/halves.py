@@ -8,7 +8,8 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
+
+from msgspec import Struct
 
 from tauledger.hand.estimate import SignalNode
 
@@ -16,8 +17,7 @@ EQUAL = 1e-6
 SHARES_ALL = 0.05
 
 
-@dataclass(frozen=True, slots=True)
-class Counted:
+class Counted(Struct, frozen=True):
     """The signal nodes that count: rows, longest time constant first, and how many equal parts the circuit has."""
 
     rows: tuple[SignalNode, ...]

@@ -9,9 +9,9 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import replace
 
 import numpy as np
+from msgspec.structs import replace
 
 from tauledger.circuit import GROUND
 from tauledger.hand.branches import Branch, Walk, branches, carrying, close, total

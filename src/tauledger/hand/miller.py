@@ -12,9 +12,10 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator
-from dataclasses import dataclass, replace
 
 import numpy as np
+from msgspec import Struct
+from msgspec.structs import replace
 
 from tauledger.circuit import GROUND
 from tauledger.hand.branches import Element, Seen, Walk, outside
@@ -30,8 +31,7 @@ NOT_PRINTED = 0.001
 TEXTBOOK_BELOW = -1.0
 
 
-@dataclass(frozen=True, slots=True)
-class HandGain:
+class HandGain(Struct, frozen=True):
     """K from a node to another: the value used, the line that gives it, and whether it was solved."""
 
     value: float
@@ -39,8 +39,7 @@ class HandGain:
     source: WorkingSource
 
 
-@dataclass(frozen=True, slots=True)
-class _Hop:
+class _Hop(Struct, frozen=True):
     element: Element
     start: str
     end: str

@@ -3,7 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
-from dataclasses import dataclass
+
+from msgspec import Struct
 
 from tauledger.circuit import GROUND
 from tauledger.hand.elements import TerminalAt
@@ -20,8 +21,7 @@ PLURAL |= {"drain": "drains", "anode": "anodes", "cathode": "cathodes", "input":
 PLURAL |= {"common terminal": "common terminals"}
 
 
-@dataclass(frozen=True, slots=True)
-class Group:
+class Group(Struct, frozen=True):
     """The hand nodes of one row, the netlist's own node first, and what they are called.
 
     name: unique. title: as the trade says it. role: terminal word(s), "output" or "node".
@@ -35,8 +35,7 @@ class Group:
     owner: str
 
 
-@dataclass(frozen=True, slots=True)
-class Passage:
+class Passage(Struct, frozen=True):
     """How the signal passes one row: ρ = x·λ/(Z·H), signed part of Σ|m|, and whether the row counts."""
 
     crossing: float

@@ -11,9 +11,9 @@ Source: Gray, Hurst, Lewis and Meyer, Analysis and Design of Analog Integrated C
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
 
 import numpy as np
+from msgspec import Struct
 
 from tauledger.hand.combine import Coefficients, Complex
 
@@ -21,8 +21,7 @@ from tauledger.hand.combine import Coefficients, Complex
 SEPARATED = 10.0
 
 
-@dataclass(frozen=True, slots=True)
-class HandPole:
+class HandPole(Struct, frozen=True):
     """One pole, of a complex pair the one above the axis, with what paper says of it.
 
     pole: exact, rad/s. hz: |p|/2π by hand, None where no formula of two coefficients reaches it. formula: as written
@@ -67,7 +66,9 @@ def _upper(poles: list[complex], pair: Coefficients | None) -> dict[complex, Han
         return {}
     return {
         pole: HandPole(pole, omega / (2 * math.pi), formula, q)
-        for pole, (omega, formula, q) in zip(poles, _formulas(poles, pair, "b1", "b2", "1/b1", "b1/b2"), strict=False)
+        for pole, (omega, formula, q) in zip(
+            poles, _formulas(poles, pair, "b1", "b2", "1/(2π·b1)", "b1/(2π·b2)"), strict=False
+        )
     }
 
 
@@ -76,7 +77,9 @@ def _lower(poles: list[complex], pair: Coefficients | None) -> dict[complex, Han
         return {}
     return {
         pole: HandPole(pole, 1 / omega / (2 * math.pi), formula, q)
-        for pole, (omega, formula, q) in zip(poles, _formulas(poles, pair, "a1", "a2", "a1", "a2/a1"), strict=False)
+        for pole, (omega, formula, q) in zip(
+            poles, _formulas(poles, pair, "a1", "a2", "a1/2π", "a2/(2π·a1)"), strict=False
+        )
     }
 
 
@@ -84,19 +87,20 @@ def _formulas(
     poles: list[complex], pair: Coefficients, first: str, second: str, dominant: str, next_one: str
 ) -> list[tuple[float, str, float | None]]:
     """Give (ω, formula, Q) for the first one or two of `poles`; for a lower edge ω is that of 1/s."""
-    root = f"1/√{second}" if first == "b1" else f"√{second}"
+    root = f"1/(2π·√{second})" if first == "b1" else f"√{second}/2π"
     if poles[0].imag:
         q = pair.q
         if q is None or q <= 0.5:
             return []
         ratio = f"Q = √{second}/{first} = {q:.3g}"
-        return [(1 / math.sqrt(pair.b2), f"f0 = {root}/2π, {ratio}", q)]
+        return [(1 / math.sqrt(pair.b2), f"f0 = {root}, {ratio}", q)]
     if len(poles) == 1 or pair.b2 <= 0 or poles[1].imag:
-        return [(1 / pair.b1, f"{dominant}/2π", None)]
+        return [(1 / pair.b1, dominant, None)]
     if pair.separation > SEPARATED:
-        return [(1 / pair.b1, f"{dominant}/2π", None), (pair.b1 / pair.b2, f"{next_one}/2π", None)]
+        return [(1 / pair.b1, dominant, None), (pair.b1 / pair.b2, next_one, None)]
     if pair.separation < 4:
-        return [(1 / pair.b1, f"{dominant}/2π", None)]
+        # several real poles close together: two coefficients would make them a pair, and neither formula holds
+        return []
     low, high = np.sort(np.abs(np.roots([pair.b2, pair.b1, 1.0])))
     quadratic = f"root of 1 + {first}·s + {second}·s²" if first == "b1" else f"root of s² + {first}·s + {second}"
     return [(float(low), quadratic, None), (float(high), quadratic, None)]

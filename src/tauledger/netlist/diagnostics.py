@@ -7,9 +7,10 @@ from __future__ import annotations
 
 import unicodedata
 from collections.abc import Iterable
-from dataclasses import dataclass
 from difflib import SequenceMatcher, get_close_matches
 from operator import itemgetter
+
+from msgspec import Struct
 
 from tauledger.circuit import fold
 from tauledger.errors import Diagnostic, NetlistError
@@ -51,8 +52,7 @@ def nearest(name: str, names: Iterable[str], *, otherwise: str = "") -> str:
     return f"did you mean {visible(spelt[best])!r}?"
 
 
-@dataclass(frozen=True, slots=True)
-class Site:
+class Site(Struct, frozen=True):
     """A card in its surroundings: what a message needs to say where it is. context: the instances around it."""
 
     files: tuple[SourceFile, ...]

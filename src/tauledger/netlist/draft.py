@@ -3,7 +3,8 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass, field
+
+from msgspec import Struct, field
 
 from tauledger.circuit import (
     GROUND,
@@ -26,8 +27,7 @@ MOST_INSTANCES = 20_000
 MOST_NESTED_INSTANCES = 60
 
 
-@dataclass(frozen=True, slots=True)
-class Row:
+class Row(Struct, frozen=True):
     """One plain R, C or L."""
 
     kind: str
@@ -39,8 +39,7 @@ class Row:
     path: int
 
 
-@dataclass(slots=True)
-class Draft:
+class Draft(Struct):
     """What elaboration has gathered so far.
 
     numbers: node number by folded flat name. taken: where each flat element name was first used. changed: values of a

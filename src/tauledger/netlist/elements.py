@@ -4,7 +4,8 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterable, Iterator
-from dataclasses import dataclass
+
+from msgspec import Struct
 
 from tauledger.circuit import fold
 from tauledger.devices.family import Family
@@ -27,8 +28,7 @@ SHAPE = {
 }
 
 
-@dataclass(frozen=True, slots=True)
-class Fields:
+class Fields(Struct, frozen=True):
     """An element card by places and keywords: parentheses are blanks, the element's name left out."""
 
     name: Word
@@ -36,8 +36,7 @@ class Fields:
     settings: tuple[Setting, ...]
 
 
-@dataclass(frozen=True, slots=True)
-class PassiveCard:
+class PassiveCard(Struct, frozen=True):
     """R, C or L: nodes, value as on the card in SI units, and m."""
 
     nodes: tuple[Word, Word]
@@ -45,8 +44,7 @@ class PassiveCard:
     m: float
 
 
-@dataclass(frozen=True, slots=True)
-class TransconductanceCard:
+class TransconductanceCard(Struct, frozen=True):
     """G: output and control nodes, gain in S, and m."""
 
     nodes: tuple[Word, ...]
@@ -54,8 +52,7 @@ class TransconductanceCard:
     m: float
 
 
-@dataclass(frozen=True, slots=True)
-class DeviceCard:
+class DeviceCard(Struct, frozen=True):
     """A device with a model: nodes, the model's name, parameters in SI units (flags are 1), and m."""
 
     nodes: tuple[Word, ...]
@@ -64,8 +61,7 @@ class DeviceCard:
     m: float
 
 
-@dataclass(frozen=True, slots=True)
-class InstanceCard:
+class InstanceCard(Struct, frozen=True):
     """X: nodes, the subcircuit's name, and the parameters given."""
 
     nodes: tuple[Word, ...]

@@ -3,7 +3,9 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass, replace
+
+from msgspec import Struct
+from msgspec.structs import replace
 
 from tauledger.circuit import GROUND, Element, Instance, ReadingNote, fold
 from tauledger.devices.family import Family
@@ -29,8 +31,7 @@ from tauledger.netlist.scopes import Binding, Scope, define, work_out_all
 from tauledger.netlist.sources import source
 
 
-@dataclass(frozen=True, slots=True)
-class Surroundings:
+class Surroundings(Struct, frozen=True):
     """The instance whose cards are being read.
 
     prefix: "X1." before its own names. ports: node numbers by folded formal name. m: product of m of all instances

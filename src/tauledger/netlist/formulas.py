@@ -3,27 +3,25 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass
+
+from msgspec import Struct
 
 
-@dataclass(frozen=True, slots=True)
-class Number:
+class Number(Struct, frozen=True):
     """A number; `at` is its offset in the formula, as everywhere in a tree."""
 
     value: float
     at: int
 
 
-@dataclass(frozen=True, slots=True)
-class Name:
+class Name(Struct, frozen=True):
     """A parameter."""
 
     text: str
     at: int
 
 
-@dataclass(frozen=True, slots=True)
-class Operation:
+class Operation(Struct, frozen=True):
     """A sign or denial with one operand, an operator with two, or "?" with three."""
 
     operator: str
@@ -31,8 +29,7 @@ class Operation:
     at: int
 
 
-@dataclass(frozen=True, slots=True)
-class Call:
+class Call(Struct, frozen=True):
     """A function with its arguments."""
 
     function: str
@@ -43,8 +40,7 @@ class Call:
 Tree = Number | Name | Operation | Call
 
 
-@dataclass(frozen=True, slots=True)
-class Formula:
+class Formula(Struct, frozen=True):
     """A formula on a card: the text between its braces or quotes, the tree, and where it stands.
 
     at: offset of its first character in the card, brace included. inner: offset of the text.

@@ -3,7 +3,8 @@
 from __future__ import annotations
 
 import re
-from dataclasses import dataclass
+
+from msgspec import Struct
 
 from tauledger.netlist.netlist import Netlist
 from tauledger.netlist.numbers import read_number
@@ -16,8 +17,7 @@ _OUTPUT_WORDS = frozenset(
 _OTHER_ANALYSES = frozenset(["tran", "dc", "op", "noise", "disto", "sp"])
 
 
-@dataclass(frozen=True, slots=True)
-class Hints:
+class Hints(Struct, frozen=True):
     """outputs: "v(out)", "v(a,b)", "i(vload)" in order, each once; those asked of an AC analysis where there are any.
 
     f_start_hz, f_stop_hz: range of the first `.ac` (or `ac` in a `.control` block), None where there is none.

@@ -6,21 +6,20 @@
 from __future__ import annotations
 
 from collections.abc import Iterable, Iterator
-from dataclasses import dataclass
+
+from msgspec import Struct
 
 from tauledger.netlist.formulas import Formula
 
 
-@dataclass(frozen=True, slots=True)
-class Word:
+class Word(Struct, frozen=True):
     """A run of characters without blank, comma, parenthesis, equals sign or quote: a name, a number or a keyword."""
 
     text: str
     at: int
 
 
-@dataclass(frozen=True, slots=True)
-class Quoted:
+class Quoted(Struct, frozen=True):
     """Text between double quotes, which are left out."""
 
     text: str
@@ -30,8 +29,7 @@ class Quoted:
 Value = Word | Formula | Quoted
 
 
-@dataclass(frozen=True, slots=True)
-class Setting:
+class Setting(Struct, frozen=True):
     """`name=value`."""
 
     name: Word
@@ -43,8 +41,7 @@ class Setting:
         return self.name.at
 
 
-@dataclass(frozen=True, slots=True)
-class Group:
+class Group(Struct, frozen=True):
     """Items between parentheses. end: offset behind the closing one."""
 
     items: tuple[Item, ...]

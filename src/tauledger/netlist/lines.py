@@ -8,7 +8,8 @@ from __future__ import annotations
 
 import re
 from collections.abc import Sequence
-from dataclasses import dataclass
+
+from msgspec import Struct
 
 from tauledger.errors import Diagnostic
 from tauledger.netlist.diagnostics import diagnostic, unsafe
@@ -18,8 +19,7 @@ _MARK = re.compile(r"""'[^']*'|"[^"]*"|;|//|\$""")
 _COMMENT_START = ("*", ";", "//", "$")
 
 
-@dataclass(frozen=True, slots=True)
-class Assembled:
+class Assembled(Struct, frozen=True):
     """A file in logical lines. scripts: the lines of each `.control` block, its fences left out."""
 
     cards: tuple[Card, ...]

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from msgspec import Struct
 
 from tauledger.circuit import Model, fold
 from tauledger.devices.family import Family
@@ -14,8 +14,7 @@ from tauledger.netlist.numbers import read_number
 from tauledger.netlist.scopes import Scope, number_of
 
 
-@dataclass(frozen=True, slots=True)
-class ModelCard:
+class ModelCard(Struct, frozen=True):
     """A model with its values; `places` gives, by folded name, the item of each parameter for messages."""
 
     model: Model

@@ -6,7 +6,8 @@ Nothing here is evaluated yet: parameters, models and instances get their values
 from __future__ import annotations
 
 from bisect import bisect_right
-from dataclasses import dataclass
+
+from msgspec import Struct
 
 from tauledger.circuit import Place, ReadingNote
 from tauledger.netlist.items import Item, Setting, Word
@@ -14,8 +15,7 @@ from tauledger.netlist.items import Item, Setting, Word
 TOP = -1
 
 
-@dataclass(frozen=True, slots=True)
-class SourceFile:
+class SourceFile(Struct, frozen=True):
     """One file that was read: its path as the user would type it and its physical lines without their ends.
 
     included_by: number of the including file, or -1; included_at: the line of the `.include` there, from 1.
@@ -27,8 +27,7 @@ class SourceFile:
     included_at: int = 0
 
 
-@dataclass(frozen=True, slots=True)
-class Piece:
+class Piece(Struct, frozen=True):
     """Where a part of a logical card came from: its offset in the card, its line and column in the file, from 1."""
 
     offset: int
@@ -36,8 +35,7 @@ class Piece:
     column: int
 
 
-@dataclass(frozen=True, slots=True)
-class Card:
+class Card(Struct, frozen=True):
     """One logical card: physical lines joined, comments out. file: number of its file in `Netlist.files`."""
 
     text: str
@@ -45,8 +43,7 @@ class Card:
     pieces: tuple[Piece, ...]
 
 
-@dataclass(frozen=True, slots=True)
-class Definition:
+class Definition(Struct, frozen=True):
     """A subcircuit, or the netlist itself (`card` is TOP, name and ports empty); cards are numbers in `Netlist.cards`.
 
     defaults: the parameters on the `.subckt` card. elements, parameters, models: card numbers in file order.
@@ -62,8 +59,7 @@ class Definition:
     definitions: tuple[Definition, ...]
 
 
-@dataclass(frozen=True, slots=True)
-class Netlist:
+class Netlist(Struct, frozen=True):
     """All that was read.
 
     path: as typed. items: per card what its text holds, empty where the card is not read by place and keyword.

@@ -6,7 +6,8 @@ Source of the suffixes: SPICE's own (T G MEG K M MIL U N P F), upper and lower c
 from __future__ import annotations
 
 import re
-from dataclasses import dataclass
+
+from msgspec import Struct
 
 SCALES = {"t": 1e12, "g": 1e9, "meg": 1e6, "k": 1e3, "m": 1e-3, "u": 1e-6, "µ": 1e-6, "μ": 1e-6, "n": 1e-9, "p": 1e-12}
 SCALES |= {"f": 1e-15, "mil": 25.4e-6}
@@ -16,8 +17,7 @@ _SUFFIX = re.compile(r"meg|mil|[tgkmuµμnpf]", re.IGNORECASE)
 _UNIT = re.compile(r"[A-Za-zµμΩ°%]*")
 
 
-@dataclass(frozen=True, slots=True)
-class Decimal:
+class Decimal(Struct, frozen=True):
     """A number as read. tail: what stands behind suffix and unit and would be dropped ("5" of "4k5"), else empty."""
 
     value: float

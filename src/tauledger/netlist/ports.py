@@ -6,7 +6,9 @@ import cmath
 import math
 import re
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, replace
+
+from msgspec import Struct
+from msgspec.structs import replace
 
 from tauledger.circuit import GROUND, Drive, Element, Port, PortKind, fold
 from tauledger.errors import InputError
@@ -19,8 +21,7 @@ _VOLTAGE = re.compile(r"v\s*\(\s*([^(),\s]+)\s*(?:,\s*([^(),\s]+)\s*)?\)", re.IG
 _CURRENT = re.compile(r"i\s*\(\s*([^(),\s]+)\s*\)", re.IGNORECASE)
 
 
-@dataclass(frozen=True, slots=True)
-class Driven:
+class Driven(Struct, frozen=True):
     """The elements with the AC values that count, and the sources that are driven."""
 
     elements: tuple[Element, ...]

@@ -8,8 +8,10 @@ from __future__ import annotations
 import codecs
 import hashlib
 import os
-from dataclasses import dataclass, field, replace
 from pathlib import Path
+
+from msgspec import Struct, field
+from msgspec.structs import replace
 
 from tauledger.circuit import ReadingNote
 from tauledger.errors import Diagnostic, InputError, NetlistError
@@ -25,8 +27,7 @@ MOST_NESTED_INCLUDES = 12
 INCLUDES = (".include", ".incl", ".inc")
 
 
-@dataclass(slots=True)
-class _Reading:
+class _Reading(Struct):
     """What has been gathered so far; filled while files are read, in the order in which they are read."""
 
     folder: Path

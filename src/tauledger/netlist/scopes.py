@@ -8,7 +8,8 @@ means the caller's); where that differs from the caller's reading, a note says s
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass, field
+
+from msgspec import Struct, field
 
 from tauledger.circuit import ReadingNote, fold
 from tauledger.errors import Diagnostic, NetlistError
@@ -19,8 +20,7 @@ from tauledger.netlist.items import Quoted, Setting, Value, Word, width
 from tauledger.netlist.numbers import read_number
 
 
-@dataclass(frozen=True, slots=True)
-class Binding:
+class Binding(Struct, frozen=True):
     """One definition of a parameter. actual: it was given on an X card. site: where that is."""
 
     site: Site
@@ -28,8 +28,7 @@ class Binding:
     actual: bool = False
 
 
-@dataclass(slots=True)
-class Scope:
+class Scope(Struct):
     """The parameters of one instance. values fills as names are asked for; pending holds those being worked out.
 
     fixed: values that a Change sets. notes and pending are shared by all scopes of one elaboration.

@@ -4,7 +4,8 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+
+from msgspec import Struct
 
 from tauledger.circuit import fold
 from tauledger.netlist.diagnostics import Site
@@ -20,8 +21,7 @@ WITH_LIST = TIME_FUNCTIONS | {"dc", "ac", "distof1", "distof2"}
 SHAPE = "V1 n+ n- DC value AC magnitude phase"
 
 
-@dataclass(frozen=True, slots=True)
-class SourceCard:
+class SourceCard(Struct, frozen=True):
     """V or I: nodes, DC value in V or A, AC magnitude and phase in degrees (magnitude None without AC), and m."""
 
     nodes: tuple[Word, Word]

@@ -4,7 +4,8 @@ from __future__ import annotations
 
 from collections import Counter
 from collections.abc import Callable
-from dataclasses import dataclass, field
+
+from msgspec import Struct, field
 
 from tauledger.circuit import ReadingNote, fold
 from tauledger.errors import Diagnostic, NetlistError
@@ -28,8 +29,7 @@ KNOWN = ANALYSES | set(OUTPUTS) | WITHOUT_EFFECT | OPTIONS | NOT_YET | STRUCTURE
 MOST_NESTED_DEFINITIONS = 40
 
 
-@dataclass(slots=True)
-class _Open:
+class _Open(Struct):
     """A definition while its cards come in."""
 
     name: str
@@ -54,8 +54,7 @@ class _Open:
         )
 
 
-@dataclass(slots=True)
-class _Sorting:
+class _Sorting(Struct):
     """What has been sorted so far."""
 
     files: tuple[SourceFile, ...]

@@ -2,9 +2,8 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-
 import numpy as np
+from msgspec import Struct
 
 from tauledger.errors import NetworkError
 from tauledger.network.solve import Complex, Real
@@ -12,8 +11,7 @@ from tauledger.network.solve import Complex, Real
 FLOOR = 1e-6
 
 
-@dataclass(frozen=True, slots=True)
-class Agreement:
+class Agreement(Struct, frozen=True):
     """max_relative_error: largest |ΔH| / max(|H|, 1e-6·|H_mid|), at at_hz, among so many points."""
 
     max_relative_error: float

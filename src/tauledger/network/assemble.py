@@ -12,9 +12,9 @@ CAS-22(6), 1975.
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
-from dataclasses import dataclass
 
 import numpy as np
+from msgspec import Struct
 from numpy.typing import NDArray
 
 from tauledger.circuit import GROUND, Port, fold
@@ -22,8 +22,7 @@ from tauledger.devices.parts import Part
 from tauledger.errors import NetworkError
 
 
-@dataclass(frozen=True, slots=True)
-class Triplets:
+class Triplets(Struct, frozen=True):
     """A sparse real matrix as coordinates; equal coordinates add. row, column: (nnz,) int; value: (nnz,)."""
 
     row: NDArray[np.intp]
@@ -37,8 +36,7 @@ class Triplets:
         return matrix
 
 
-@dataclass(frozen=True, slots=True)
-class Network:
+class Network(Struct, frozen=True):
     """The assembled small-signal network.
 
     parts: what it was built from. unknowns: node names, then the owners of the branch currents. n_nodes: how

@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
-from dataclasses import dataclass, replace
 from typing import Literal
 
 import numpy as np
+from msgspec import Struct
+from msgspec.structs import replace
 
 from tauledger.circuit import GROUND, Port, fold
 from tauledger.devices.parts import Part
@@ -26,8 +27,7 @@ GAIN_TOLERANCE = 0.02
 BEYOND_ALL_POLES = 1e4
 
 
-@dataclass(frozen=True, slots=True)
-class Bands:
+class Bands(Struct, frozen=True):
     """The network seen from mid-band.
 
     class_of: "short", "open" or "tuned" by part name, for every capacitance, transcapacitance and inductance.

@@ -11,9 +11,8 @@ Circuits Syst. I 57(6), 2010 (transfer constants).
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-
 import numpy as np
+from msgspec import Struct
 
 from tauledger.circuit import GROUND
 from tauledger.devices.parts import PartKind
@@ -28,8 +27,7 @@ IN_PATH_WEIGHT = 0.05
 IN_PATH_MOMENT = 0.005
 
 
-@dataclass(frozen=True, slots=True)
-class MidBandInverse:
+class MidBandInverse(Struct, frozen=True):
     """Z = G⁻¹ of a resistive network and its signal solution: z (n, n), x (n,) complex, adjoint (n,), gain H.
 
     x is driven by the sources; adjoint is Gᵀ⁻¹ e. Z and x are meant at s = 0.
@@ -68,8 +66,7 @@ class MidBandInverse:
         return float((self.x[row] * self.adjoint[row] / (self.z[row, row] * self.gain)).real)
 
 
-@dataclass(frozen=True, slots=True)
-class OpenConstant:
+class OpenConstant(Struct, frozen=True):
     """One part of the upper network.
 
     resistance_ohm: R⁰ across it (a transfer impedance for a transcapacitance; for an inductance the resistance that
@@ -87,8 +84,7 @@ class OpenConstant:
     in_path: bool
 
 
-@dataclass(frozen=True, slots=True)
-class OpenConstants:
+class OpenConstants(Struct, frozen=True):
     """The ledger of the upper network at s = 0.
 
     sum_s: Σ τ over all parts. inverse_pole_sum_s: −Σ 1/p. weighted_sum_s: Σ w·τ. group_delay_s: −dφ/dω of H.

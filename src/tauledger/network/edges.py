@@ -6,9 +6,9 @@ d ln|H|/d ln f of the adjoint solution, to rounding.
 
 from __future__ import annotations
 
-from dataclasses import dataclass, replace
-
 import numpy as np
+from msgspec import Struct
+from msgspec.structs import replace
 
 from tauledger.network.assemble import Network
 from tauledger.network.midband import MidBand, frequency_range
@@ -24,8 +24,7 @@ UNCHANGED = 0.01
 LAST_STEP = 1e-8
 
 
-@dataclass(frozen=True, slots=True)
-class Edge:
+class Edge(Struct, frozen=True):
     """One side of the band.
 
     hz: the first −3 dB crossing, None where there is none. slope: d ln|H|/d ln f there (−1 per pole far above it).
@@ -51,8 +50,7 @@ class Edge:
         return self.slope is not None and abs(self.slope) < SHALLOW_SLOPE
 
 
-@dataclass(frozen=True, slots=True)
-class Edges:
+class Edges(Struct, frozen=True):
     """Both band edges; one is None where the response does not leave mid-band on that side.
 
     frequency_hz: (k,) the scan. response: (k,) complex H there.
@@ -64,8 +62,7 @@ class Edges:
     response: Complex
 
 
-@dataclass(frozen=True, slots=True)
-class _Side:
+class _Side(Struct, frozen=True):
     """The scan going outwards from the reference: frequency and |H|/|H_mid|, each (k,)."""
 
     frequency_hz: Real
@@ -100,8 +97,7 @@ def at_same_frequency(network: Network, midband: MidBand) -> MidBand:
     return replace(midband, gain=complex(response(network, np.array([midband.frequency_hz]))[0]))
 
 
-@dataclass(frozen=True, slots=True)
-class _Angle:
+class _Angle(Struct, frozen=True):
     """Phase by poles and zeros, continuous along the axis: it chooses the turn of the exact phase."""
 
     poles: Complex

@@ -7,9 +7,9 @@ ours, never of the netlist.
 from __future__ import annotations
 
 from collections.abc import Iterable
-from dataclasses import dataclass
 
 import numpy as np
+from msgspec import Struct
 
 from tauledger.errors import NetworkError
 from tauledger.network.assemble import Network
@@ -25,8 +25,7 @@ ON_THE_AXIS = 1e-6
 POLES = 1e-6
 
 
-@dataclass(frozen=True, slots=True)
-class Identity:
+class Identity(Struct, frozen=True):
     """Two numbers that must be equal: |left − right| ≤ tolerance · scale."""
 
     name: str

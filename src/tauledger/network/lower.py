@@ -11,9 +11,9 @@ Source: Gray, Hurst, Lewis and Meyer, "Analysis and Design of Analog Integrated 
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
 
 import numpy as np
+from msgspec import Struct
 
 from tauledger.devices.parts import Part
 from tauledger.errors import NetworkError
@@ -28,8 +28,7 @@ IN_PATH_MOMENT = 0.02
 NOTHING = 1e-12
 
 
-@dataclass(frozen=True, slots=True)
-class ShortConstant:
+class ShortConstant(Struct, frozen=True):
     """Capacitors in parallel that are short at mid-band, taken together, or one inductor that is open there.
 
     value: F (their sum) or H. resistance_ohm: across them, all others in their mid-band state; 0 where they close a
@@ -47,8 +46,7 @@ class ShortConstant:
     in_path: bool
 
 
-@dataclass(frozen=True, slots=True)
-class ShortConstants:
+class ShortConstants(Struct, frozen=True):
     """The ledger of the lower network: sum_hz = Σ f_k, pole_sum_hz = −Σ p/2π.
 
     Both None where capacitors alone form a loop, and where a tuned part belongs to neither side.
@@ -62,7 +60,8 @@ class ShortConstants:
 def short_constants(bands: Bands) -> ShortConstants:
     """Give R, edge and zero of every mid-band short (inductors: open) in the lower network, and the sum of the edges.
 
-    A row is not in the path where its weight is below 5 % and weight·edge below 2 % of their sum: decoupling.
+    A row is in the path where taking it away lowers the gain by 5 % or more, or where |weight·edge| is above 2 % of
+    their sum. Decoupling behind a choke or a resistor is not: without it the gain even rises.
     Raises NetworkError where the mid-band network has no unique solution.
     """
     network, gain = bands.network, inverse(midband_network(bands.network, bands.class_of)).gain
@@ -79,7 +78,7 @@ def short_constants(bands: Bands) -> ShortConstants:
             edge_hz=edge,
             zero_hz=edge * left if abs(left) > NOTHING else 0.0,
             weight=1.0 - left,
-            in_path=abs(1.0 - left) >= IN_PATH_WEIGHT or abs((1.0 - left) * edge) > IN_PATH_MOMENT * total,
+            in_path=1.0 - left >= IN_PATH_WEIGHT or abs((1.0 - left) * edge) > IN_PATH_MOMENT * total,
         )
         for group, (ohm, edge, left) in zip(groups, facts, strict=True)
     )

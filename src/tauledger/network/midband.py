@@ -2,9 +2,8 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-
 import numpy as np
+from msgspec import Struct
 
 from tauledger.errors import InputError, NetworkError
 from tauledger.network.assemble import Network
@@ -22,8 +21,7 @@ CONSTANT_RANGE_HZ = (1.0, 10.0)
 NO_SIGNAL = 1e-14
 
 
-@dataclass(frozen=True, slots=True)
-class MidBand:
+class MidBand(Struct, frozen=True):
     """The reference of all band edges.
 
     frequency_hz: 0 where the plateau reaches DC. from_hz, to_hz: the plateau's extent, 0 at DC, inf without upper
@@ -41,8 +39,7 @@ class MidBand:
         return self.from_hz is not None
 
 
-@dataclass(frozen=True, slots=True)
-class _Scan:
+class _Scan(Struct, frozen=True):
     """|H| and its exact logarithmic slope over frequency: each (k,)."""
 
     frequency_hz: Real
@@ -50,8 +47,7 @@ class _Scan:
     slope: Real
 
 
-@dataclass(frozen=True, slots=True)
-class _Plateau:
+class _Plateau(Struct, frozen=True):
     """A run of the scan from point `first` to `last`; frequency_hz is its own reference, gain |H| there."""
 
     first: int
@@ -85,7 +81,8 @@ def find_midband(network: Network, *, at_hz: float | None = None) -> MidBand:
     if plateaus:
         highest = max(plateau.gain for plateau in plateaus)
         near = [plateau for plateau in plateaus if plateau.gain >= highest * SAME_GAIN]
-        best = max(near, key=lambda plateau: (plateau.decades, plateau.gain))
+        # two plateaus without end whose gains differ by rounding alone: the lower one is what a reader expects
+        best = max(near, key=lambda plateau: (plateau.decades, float(f"{plateau.gain:.6g}"), -plateau.from_hz))
         frequency = 0.0 if best.from_hz == 0.0 and _direct(network) else _reference(network, scan, best)
         return MidBand(frequency, best.from_hz, best.to_hz, complex(response(network, np.array([frequency]))[0]))
     peak = int(np.argmax(scan.magnitude))

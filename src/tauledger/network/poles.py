@@ -9,9 +9,9 @@ Source of the sensitivity: Lancaster, "On eigenvalues of matrices dependent on a
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
 
 import numpy as np
+from msgspec import Struct
 from numpy.typing import NDArray
 
 from tauledger.errors import NetworkError
@@ -26,8 +26,7 @@ BESIDE = 1e-9
 GOLDEN = 0.5 * (np.sqrt(5.0) - 1.0)
 
 
-@dataclass(frozen=True, slots=True)
-class Pole:
+class Pole(Struct, frozen=True):
     """One pole, s in rad/s; of a complex pair the one above the axis.
 
     owners: −d ln p/d ln value by part name, real part; they add to 1. Empty for a pole at the origin and for a multiple
@@ -41,16 +40,14 @@ class Pole:
     q: float | None = None
 
 
-@dataclass(frozen=True, slots=True)
-class Zero:
+class Zero(Struct, frozen=True):
     """One zero of the transfer function, s in rad/s; of a complex pair the one above the axis."""
 
     s: complex
     cancelled: bool
 
 
-@dataclass(frozen=True, slots=True)
-class PoleZeroMap:
+class PoleZeroMap(Struct, frozen=True):
     """All finite poles and zeros, lowest first. stable: no pole lies to the right of the axis."""
 
     poles: tuple[Pole, ...]

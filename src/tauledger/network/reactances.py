@@ -6,9 +6,8 @@ value · (λᵀ out)(controlᵀ x), the pole it owns.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-
 import numpy as np
+from msgspec import Struct
 
 from tauledger.devices.parts import Part
 from tauledger.network.assemble import Network, Triplets, incidence
@@ -17,8 +16,7 @@ from tauledger.network.solve import Complex, Real, Solution
 REACTIVE = ("capacitance", "inductance", "transcapacitance")
 
 
-@dataclass(frozen=True, slots=True)
-class Reactances:
+class Reactances(Struct, frozen=True):
     """The reactive parts in the network's order. value: (m,) F or H. out, control: (n, m)."""
 
     parts: tuple[Part, ...]

@@ -10,9 +10,10 @@ element of a given matrix", Ann. Math. Stat. 21(1), 1950.
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass, replace
 
 import numpy as np
+from msgspec import Struct
+from msgspec.structs import replace
 
 from tauledger.errors import NetworkError
 from tauledger.network.assemble import Network, assemble
@@ -24,8 +25,7 @@ from tauledger.network.solve import DENSE_LIMIT, Complex, Real, admittance, on_a
 SCANNED_BEYOND = 10.0
 
 
-@dataclass(frozen=True, slots=True)
-class EdgeFrequencies:
+class EdgeFrequencies(Struct, frozen=True):
     """Both band edges in Hz, None where there is none."""
 
     f_low: float | None

@@ -12,9 +12,9 @@ CT-16(3), 1969 (adjoint sensitivities).
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
 
 import numpy as np
+from msgspec import Struct
 
 from tauledger.network.assemble import Network
 from tauledger.network.bands import BandClass
@@ -23,8 +23,7 @@ from tauledger.network.reactances import moments, reactances
 from tauledger.network.solve import Complex, Real, log_slope, on_axis, solve
 
 
-@dataclass(frozen=True, slots=True)
-class Shares:
+class Shares(Struct, frozen=True):
     """What sets one band edge, at frequency hz.
 
     parts: −∂ln f/∂ln value by name of every capacitance, inductance and transcapacitance of the whole network.

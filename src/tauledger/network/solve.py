@@ -6,10 +6,10 @@ per frequency serves both the forward and the adjoint system.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
 from typing import TYPE_CHECKING, cast
 
 import numpy as np
+from msgspec import Struct
 from numpy.typing import NDArray
 
 from tauledger.errors import NetworkError
@@ -26,8 +26,7 @@ Real = NDArray[np.float64]
 Complex = NDArray[np.complex128]
 
 
-@dataclass(frozen=True, slots=True)
-class Solution:
+class Solution(Struct, frozen=True):
     """x and λ at each complex frequency s: s (k,), x (k, n), adjoint λ (k, n), response H (k,)."""
 
     s: Complex

@@ -7,7 +7,7 @@ from typing import Any
 
 import msgspec
 
-from tauledger.record import SCHEMA, PartRow, Review
+from tauledger.record import SCHEMA, Review
 
 SCHEMA_FILE = "review.schema.json"
 
@@ -17,9 +17,7 @@ def to_json(review: Review) -> bytes:
 
     Equal reviews give equal bytes. What is not finite becomes null, for JSON has no NaN.
     """
-    document = msgspec.to_builtins(review)
-    document["parts"] = [_class_for_klass(row) for row in document["parts"]]
-    return msgspec.json.encode(_finite(document)) + b"\n"
+    return msgspec.json.encode(_finite(msgspec.to_builtins(review))) + b"\n"
 
 
 def schema() -> dict[str, Any]:
@@ -29,9 +27,6 @@ def schema() -> dict[str, Any]:
     `python -c "from tauledger.report.json import schema_text; print(schema_text(), end='')"`.
     """
     found = msgspec.json.schema(Review)
-    parts = found["$defs"][PartRow.__name__]
-    parts["properties"] = _class_for_klass(parts["properties"])
-    parts["required"] = ["class" if name == "klass" else name for name in parts["required"]]
     found["$defs"][Review.__name__]["properties"]["schema"] = {"const": SCHEMA}
     return {"$schema": "https://json-schema.org/draft/2020-12/schema", "$id": SCHEMA, **found}
 
@@ -39,11 +34,6 @@ def schema() -> dict[str, Any]:
 def schema_text() -> str:
     """Give the schema as the text of the file that ships."""
     return msgspec.json.format(msgspec.json.encode(schema()), indent=1).decode() + "\n"
-
-
-def _class_for_klass(row: dict[str, Any]) -> dict[str, Any]:
-    """`class` is a keyword of Python, hence the record's spelling."""
-    return {"class" if name == "klass" else name: value for name, value in row.items()}
 
 
 def _finite(value: Any) -> Any:

@@ -8,7 +8,8 @@ from __future__ import annotations
 import re
 import unicodedata
 from collections.abc import Iterable, Sequence
-from dataclasses import dataclass
+
+from msgspec import Struct
 
 HEADING = "heading"
 STRONG = "strong"
@@ -61,16 +62,14 @@ _GLUE = "\N{NO-BREAK SPACE}"
 _BEFORE_A_UNIT = re.compile(r"(?<=[\d∞]) (?=(?:%|[fpnuµmkMGT]?(?:Hz|F|Ω|ohm|s|V|A|S|H)|dB|deg)(?!\w))")
 
 
-@dataclass(frozen=True, slots=True)
-class Row:
+class Row(Struct, frozen=True):
     """One row of a table; `style` holds for the whole line."""
 
     cells: tuple[str, ...]
     style: str = ""
 
 
-@dataclass(frozen=True, slots=True)
-class Table:
+class Table(Struct, frozen=True):
     """Columns that line up. align: one of l, r per column. indent: blanks before each row, the head not."""
 
     align: str
@@ -79,8 +78,7 @@ class Table:
     indent: int = 2
 
 
-@dataclass(frozen=True, slots=True)
-class Prose:
+class Prose(Struct, frozen=True):
     """Words that wrap. lead: what stands before the first line. hang: blanks before the others, None: lead's width."""
 
     text: str
@@ -89,8 +87,7 @@ class Prose:
     hang: int | None = None
 
 
-@dataclass(frozen=True, slots=True)
-class Line:
+class Line(Struct, frozen=True):
     """One laid-out line."""
 
     text: str
@@ -100,8 +97,7 @@ class Line:
 Block = Table | Prose
 
 
-@dataclass(frozen=True, slots=True)
-class Section:
+class Section(Struct, frozen=True):
     """Blocks that belong together; major: keeps the empty line before it longest."""
 
     blocks: tuple[Block, ...]

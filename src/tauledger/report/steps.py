@@ -3,7 +3,8 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+
+from msgspec import Struct
 
 from tauledger.record import Review
 from tauledger.report.layout import HEADING, Block, Prose, Section
@@ -22,8 +23,7 @@ _IN_SHORT = {
 _CLASSICAL = "sum of time constants"
 
 
-@dataclass(frozen=True, slots=True)
-class _Told:
+class _Told(Struct, frozen=True):
     """One step as it is printed: its id, frequency, move in per cent, reason."""
 
     step: str

@@ -4,13 +4,13 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable
-from dataclasses import dataclass
+
+from msgspec import Struct
 
 from tauledger.hand.elements import Cell
 
 
-@dataclass(frozen=True, slots=True)
-class Outside:
+class Outside(Struct, frozen=True):
     """The resistances in ohm from the control, the common and the output node to AC ground, the cell taken out."""
 
     control: float = 0.0
@@ -18,8 +18,7 @@ class Outside:
     output: float = 0.0
 
 
-@dataclass(frozen=True, slots=True)
-class Rule:
+class Rule(Struct, frozen=True):
     """One looking-in rule.
 
     name: where one looks, in the words of a bipolar or field-effect transistor. formula: exact closed form.
