@@ -102,12 +102,50 @@ class Passives(Struct, frozen=True):
         return len(self.name)
 
 
+class Number(Struct, frozen=True, tag=True):
+    """A constant of a formula."""
+
+    value: float
+
+
+class Voltage(Struct, frozen=True, tag=True):
+    """v(plus, minus) in a formula, by node numbers."""
+
+    plus: int
+    minus: int
+
+
+class Current(Struct, frozen=True, tag=True):
+    """i(source) in a formula: the current through a voltage source, by its flat name."""
+
+    source: str
+
+
+class Variable(Struct, frozen=True, tag=True):
+    """A quantity of the analysis in a formula: temper (°C), hertz, time."""
+
+    name: str
+
+
+class Apply(Struct, frozen=True, tag=True):
+    """An operator ("+", "-", "*", "/", "^", "<", "?:", …) or function ("exp", "pwl", …) in a formula, on its arguments."""
+
+    function: str
+    arguments: tuple[Formula, ...]
+
+
+Formula = Number | Voltage | Current | Variable | Apply
+
+
 class Element(Struct, frozen=True):
     """One element that is not a plain R, C or L.
 
-    letter: element letter in upper case. nodes: node numbers in the order of the card. model: name of the model
-    or empty. parameters: (name, value) pairs in SI units, names folded; a V or I source has dc, acmag, acphase
-    (degrees).
+    letter: element letter in upper case. nodes: node numbers in the order of the card; of a controlled source with
+    POLY(n) the output pair, then n control pairs. model: name of the model or empty. parameters: (name, value) pairs in SI
+    units, names folded; a V or I source has dc, acmag, acphase (degrees).
+    references: flat names of the elements that it depends on (F, H, W: voltage sources; K: the inductors).
+    polynomial: coefficients of POLY, in the order of the card. formula: of a B source or a behavioural element, with
+    `quantity` what it gives: v, i, r, c, l or q.
     """
 
     letter: str
@@ -117,6 +155,10 @@ class Element(Struct, frozen=True):
     parameters: tuple[tuple[str, float], ...]
     card: int
     path: int
+    references: tuple[str, ...] = ()
+    polynomial: tuple[float, ...] = ()
+    formula: Formula | None = None
+    quantity: str = ""
 
     def parameter(self, name: str, default: float) -> float:
         """Give one parameter by its folded name, or `default` where the card does not set it."""

@@ -77,7 +77,8 @@ class SignalNode(Struct, frozen=True):
     fraction of Σ|w·τ|.
     in_path: the row counts. lines: one per node that carries capacitance, the dominant one first.
     resistance_hand_ohm, resistance_exact_ohm: of the dominant node.
-    time_constant_s (hand), time_constant_exact_s: sums over the lines. capacitance_f = time_constant_s / resistance_hand_ohm.
+    time_constant_s (hand), time_constant_exact_s: sums over the lines.
+    capacitance_f = time_constant_s / resistance_hand_ohm.
     """
 
     name: str

@@ -1,0 +1,80 @@
+"""`tauledger review`: one netlist, reviewed."""
+
+from __future__ import annotations
+
+import sys
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+import click
+
+from tauledger.commands.console import can_show_symbols, colored, hertz, print_bytes, writable, write
+from tauledger.errors import ExitCode, InputError
+
+if TYPE_CHECKING:
+    from tauledger.record import Review
+
+_COLOR_CHOICES = ("auto", "always", "never")
+_EXIT_CODES = (
+    "Exit codes: 0 reviewed; 1 the rebuilt network and ngspice differ by more than 1e-3; 2 netlist or option cannot be "
+    "used; 3 ngspice failed or is missing; 4 a fault of tauledger; 130 interrupted."
+)
+
+
+@click.command("review", short_help="Review one netlist.", epilog=_EXIT_CODES)
+@click.argument("netlist")
+@click.option("--input", "drive", metavar="SRC", help="Drive source SRC with 1, all others with 0.")
+@click.option("--output", metavar="V", help="Take the response at: out, 'v(a,b)' or 'i(vload)'.")
+@click.option("--midband", metavar="HZ", help="Refer band edges to the gain at HZ, e.g. 10k.")
+@click.option("--json", "json_file", metavar="FILE", help="Write the review as JSON; '-': alone on standard output.")
+@click.option("--timeout", metavar="S", type=float, default=60.0, show_default=True, help="Seconds ngspice may take.")
+@click.option("--library", metavar="PATH", help="Use this ngspice library.")
+@click.option("--color", type=click.Choice(_COLOR_CHOICES), default="auto", show_default=True, help="Colour the text.")
+@click.option("--verbose", is_flag=True, help="Show every node, part, pole and zero, and the working.")
+def review_command(
+    netlist: str,
+    drive: str | None,
+    output: str | None,
+    midband: str | None,
+    json_file: str | None,
+    timeout: float,
+    library: str | None,
+    color: str,
+    verbose: bool,
+) -> ExitCode:
+    """Review the amplifier in NETLIST: does paper agree with the simulation, where not, and why?"""
+    if netlist == "-":
+        raise InputError("the netlist must be a file", "files that it includes are looked up beside it")
+    if not timeout > 0.0:
+        raise InputError(f"--timeout {timeout:g}: no time to run in", "give seconds above 0, e.g. --timeout 60")
+    midband_hz = None if midband is None else hertz("--midband", midband)
+    target = None if json_file in (None, "-") else writable("--json", Path(str(json_file)))
+
+    from tauledger.engine.client import start_engine
+
+    # ngspice comes up in its own process while the rest of this one is imported.
+    with start_engine(library=library, timeout_s=timeout) as engine:
+        from tauledger.pipeline import review
+
+        found = review(netlist, engine=engine, drive=drive, output=output, midband_hz=midband_hz)
+    if json_file is not None:
+        from tauledger.report.json import to_json
+
+        document = to_json(found)
+        if target is None:
+            print_bytes(document)
+            return _verdict(found)
+        write("--json", target, document)
+
+    from tauledger.report.terminal import render
+
+    encoding = sys.stdout.encoding
+    text = render(found, color=colored(color), unicode=can_show_symbols(encoding), verbose=verbose)
+    print_bytes(text.encode(encoding, errors="backslashreplace"))
+    return _verdict(found)
+
+
+def _verdict(found: Review) -> ExitCode:
+    from tauledger.report.wording import network_rejected
+
+    return ExitCode.CHECK_FAILED if network_rejected(found) else ExitCode.OK
