@@ -128,7 +128,7 @@ class Variable(Struct, frozen=True, tag=True):
 
 
 class Apply(Struct, frozen=True, tag=True):
-    """An operator ("+", "-", "*", "/", "^", "<", "?:", …) or function ("exp", "pwl", …) in a formula, on its arguments."""
+    """An operator ("+", "-", "*", "/", "^", "<", "?:", …) or function ("exp", "pwl", …) of a formula, with arguments."""
 
     function: str
     arguments: tuple[Formula, ...]
@@ -141,8 +141,8 @@ class Element(Struct, frozen=True):
     """One element that is not a plain R, C or L.
 
     letter: element letter in upper case. nodes: node numbers in the order of the card; of a controlled source with
-    POLY(n) the output pair, then n control pairs. model: name of the model or empty. parameters: (name, value) pairs in SI
-    units, names folded; a V or I source has dc, acmag, acphase (degrees).
+    POLY(n) the output pair, then n control pairs. model: name of the model or empty. parameters: (name, value) pairs in
+    SI units, names folded; a V or I source has dc, acmag, acphase (degrees).
     references: flat names of the elements that it depends on (F, H, W: voltage sources; K: the inductors).
     polynomial: coefficients of POLY, in the order of the card. formula: of a B source or a behavioural element, with
     `quantity` what it gives: v, i, r, c, l or q.
