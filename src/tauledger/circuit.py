@@ -128,7 +128,7 @@ class Variable(Struct, frozen=True, tag=True):
 
 
 class Apply(Struct, frozen=True, tag=True):
-    """An operator ("+", "-", "*", "/", "^", "<", "?:", …) or function ("exp", "pwl", …) of a formula, with arguments."""
+    """Operator ("+", "-", "*", "/", "^", "<", "?:", …) or function ("exp", "pwl", …) of a formula and its arguments."""
 
     function: str
     arguments: tuple[Formula, ...]
