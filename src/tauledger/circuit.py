@@ -165,6 +165,23 @@ class Element(Struct, frozen=True):
         return dict(self.parameters).get(name, default)
 
 
+def terminals_of(element: Element) -> tuple[int, ...]:
+    """Give the distinct nodes that an element touches or senses, by number, in the order in which they first stand.
+
+    Those of the card come first, then those of the formula.
+    """
+    return tuple(dict.fromkeys((*element.nodes, *_sensed(element.formula))))
+
+
+def _sensed(formula: Formula | None) -> tuple[int, ...]:
+    match formula:
+        case Voltage(plus=plus, minus=minus):
+            return (plus, minus)
+        case Apply(arguments=arguments):
+            return tuple(node for argument in arguments for node in _sensed(argument))
+    return ()
+
+
 class Model(Struct, frozen=True):
     """One `.model` card: its flat name, type and level, and its parameters in SI units, names folded."""
 

@@ -26,7 +26,7 @@ if TYPE_CHECKING:
     from tauledger.circuit import Circuit
     from tauledger.engine.deck import Deck
     from tauledger.engine.grid import Grid
-    from tauledger.solution import Bias, Observation, Sweep
+    from tauledger.solution import Bias, Isolation, Observation, Samples, Sweep
 
 INSTALL_HINT = (
     "install it: Debian, Ubuntu: apt install libngspice0; "
@@ -85,6 +85,8 @@ class Engine:
         self._open = True
         self._loaded: tuple[Circuit, Deck] | None = None
         self._saved = False
+        # A measurement of one instance puts its own deck in the place of the circuit's.
+        self._displaced = False
 
     def __enter__(self) -> Engine:
         return self
@@ -142,7 +144,7 @@ class Engine:
         passives = circuit.passives
         letters = [*zip(passives.name, passives.kind, strict=True), *((e.name, e.letter) for e in circuit.elements)]
         branches = [name for name, letter in letters if letter in WITH_BRANCH_CURRENT]
-        devices = [(deck.elements[fold(o.element)], list(o.readings)) for o in observations]
+        devices = [(deck.elements[fold(o.element)], [*o.readings, *o.optional]) for o in observations]
         vectors = [*deck.nodes[1:], *(f"{deck.elements[fold(name)]}#branch" for name in branches)]
         answer = self._ask({"do": "bias", "deck": deck.text, "vectors": vectors, "readings": devices})
 
@@ -162,11 +164,12 @@ class Engine:
                 raise _NotConverged("ngspice found no operating point", CONVERGENCE_HINT, says)
         read: dict[str, dict[str, float]] = {}
         for observation, found in zip(observations, readings, strict=True):
-            read[observation.element] = dict(zip(observation.readings, found, strict=True))
-            for name, value in read[observation.element].items():
-                if not _finite(value):
+            every = dict(zip((*observation.readings, *observation.optional), found, strict=True))
+            for name in observation.readings:
+                if not _finite(every[name]):
                     raise EngineError(f"ngspice {self._version} gives no {name} for {observation.element}")
-        self._loaded, self._saved = (circuit, deck), False
+            read[observation.element] = {name: value for name, value in every.items() if _finite(value)}
+        self._loaded, self._saved, self._displaced = (circuit, deck), False, False
         return Bias(
             voltages=np.array([0.0, *values[: len(deck.nodes) - 1]]),
             currents=dict(zip(branches, values[len(deck.nodes) - 1 :], strict=True)),
@@ -203,6 +206,55 @@ class Engine:
             raise EngineError("ngspice's AC response is not finite")
         return found
 
+    def isolate(self, circuit: Circuit, isolation: Isolation) -> Samples:
+        """Measure one instance alone: terminal admittance and inner nodes' voltages at the frequencies asked.
+
+        The instance has its own model, the circuit's options and temperature, and stands at the voltages given. The
+        circuit that was loaded stays the one that `sweep` answers for.
+        Raises EngineError (rejected, no operating point, no AC response), EngineTimeout; ValueError where voltages do
+        not fit to the terminals.
+        """
+        import numpy as np
+
+        from tauledger.circuit import fold
+        from tauledger.engine.alone import alone, samples
+        from tauledger.engine.deck import write_deck
+        from tauledger.engine.grid import GRID_TOLERANCE, plan
+        from tauledger.engine.verdict import judge
+
+        single = alone(circuit, isolation)
+        deck = write_deck(single.circuit)
+        at = {name: deck.elements[fold(name)] for name in (isolation.element, *single.holders, *single.forced)}
+        asked = np.array(isolation.frequency_hz, dtype=float)
+        grids = [(g.points, g.start_hz, g.stop_hz) for g in plan(asked)]
+        vectors = [f"{at[name]}#branch" for name in single.holders]
+        vectors += [f"{at[isolation.element]}#{suffix}" for suffix in isolation.inner]
+        sources = [at[name] for name in (*single.holders, *single.forced)]
+        self._displaced = True
+        request = {"do": "isolate", "deck": deck.text, "vectors": vectors, "grids": grids, "sources": sources}
+        answer = self._ask(request)
+
+        columns: list[np.ndarray] = []
+        frequency = asked
+        for runs in answer["driven"]:
+            for run in runs:
+                solved = [run["frequency"], *run["vectors"][: len(single.holders)]]
+                verdict = judge(answer["load"], run["run"], has_result=all(solved), names=deck.says)
+                if verdict.state not in ("sound", "stepped"):
+                    raise EngineError(
+                        f"ngspice gave no AC response of {isolation.element} alone",
+                        engine_says=verdict.says[:TELL_AT_MOST],
+                    )
+            frequency = np.concatenate([np.array(run["frequency"]).view(complex).real for run in runs])
+            if len(frequency) != len(asked) or np.max(np.abs(frequency / asked - 1.0)) > GRID_TOLERANCE:
+                raise EngineError("ngspice solved other frequencies than those asked for")
+            columns.append(
+                np.array(
+                    [np.concatenate([_column(run, k) for run in runs]) for k in range(len(vectors))], dtype=complex
+                )
+            )
+        return samples(isolation, single.terminals, frequency, columns)
+
     def _run(self, grids: Sequence[Grid]) -> Sweep:
         """Run AC grids on the loaded circuit; the sweep holds whatever frequencies the engine laid out."""
         import numpy as np
@@ -213,9 +265,14 @@ class Engine:
         assert self._loaded is not None
         circuit, deck = self._loaded
         vectors = _output_vectors(circuit, deck)
-        request = {"do": "sweep", "save": not self._saved, "vectors": [name for name, _ in vectors]}
+        request = {
+            "do": "sweep",
+            "deck": deck.text if self._displaced else "",
+            "save": self._displaced or not self._saved,
+            "vectors": [name for name, _ in vectors],
+        }
         answers = self._ask({**request, "grids": [(g.points, g.start_hz, g.stop_hz) for g in grids]})["answers"]
-        self._saved = True
+        self._saved, self._displaced = True, False
         frequency: list[np.ndarray] = []
         response: list[np.ndarray] = []
         for answer in answers:
@@ -298,6 +355,16 @@ def _output_vectors(circuit: Circuit, deck: Deck) -> list[tuple[str, float]]:
     at = {fold(name): made for name, made in zip(circuit.nodes, deck.nodes, strict=True)}
     ends = ((port.plus, 1.0), (port.minus, -1.0))
     return [(at[fold(node)], sign) for node, sign in ends if node != GROUND]
+
+
+def _column(run: Message, k: int) -> NDArray[np.complex128]:
+    """Give one vector of an AC run, or NaN where the engine has none of that name."""
+    import numpy as np
+
+    values = run["vectors"][k]
+    if values is None:
+        return np.full(len(run["frequency"]) // 2, np.nan + 0j)
+    return np.array(values).view(complex)
 
 
 def _finite(value: float | None) -> bool:

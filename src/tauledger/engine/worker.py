@@ -123,9 +123,31 @@ def bias(spice: Spice, request: Message) -> Message:
 
 
 def sweep(spice: Spice, request: Message) -> Message:
-    """Run the AC grids one after the other and read vectors after each."""
+    """Run the AC grids one after the other and read vectors after each; load the deck before, where it is given."""
+    if request["deck"]:
+        spice.command("remcirc")
+        spice.command("destroy all")
+        spice.load(request["deck"])
     if request["save"]:
         spice.command("save " + " ".join(request["vectors"]))
+    return {"answers": _ac(spice, request)}
+
+
+def isolate(spice: Spice, request: Message) -> Message:
+    """Load a deck, and run the AC grids with unit amplitude on one of the sources after the other."""
+    spice.command("remcirc")
+    spice.command("destroy all")
+    load = spice.load(request["deck"])
+    spice.command("save " + " ".join(request["vectors"]))
+    driven: list[list[Message]] = []
+    for source in request["sources"]:
+        spice.command(f"alter {source} acmag = 1.0")
+        driven.append(_ac(spice, request))
+        spice.command(f"alter {source} acmag = 0.0")
+    return {"load": load, "driven": driven}
+
+
+def _ac(spice: Spice, request: Message) -> list[Message]:
     answers: list[Message] = []
     for points, start, stop in request["grids"]:
         spice.command("destroy all")
@@ -138,7 +160,7 @@ def sweep(spice: Spice, request: Message) -> Message:
                 "vectors": [spice.vector(name) if solved else None for name in request["vectors"]],
             }
         )
-    return {"answers": answers}
+    return answers
 
 
 def _readings(spice: Spice, device: str, asked: list[str]) -> list[float | None]:
@@ -170,7 +192,7 @@ def main(request_fd: int, reply_fd: int, folder: str, library: str) -> None:
         send(reply_fd, {"missing": str(reason)})
         return
     send(reply_fd, {"version": spice.version})
-    work = {"bias": bias, "sweep": sweep}
+    work = {"bias": bias, "sweep": sweep, "isolate": isolate}
     while True:
         request = inbox.get()
         send(reply_fd, work[request["do"]](spice, request))

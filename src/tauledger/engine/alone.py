@@ -1,0 +1,124 @@
+"""One instance alone: the small circuit in which it is measured, and its answers put together.
+
+Every terminal stands on a voltage source of its own, ground included; a source that the instance refers to carries a
+forced current. The engine is asked with unit AC on one of them after the other.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+import numpy as np
+from msgspec import Struct
+from msgspec.structs import replace
+from numpy.typing import NDArray
+
+from tauledger.circuit import (
+    GROUND,
+    Apply,
+    Circuit,
+    Element,
+    Formula,
+    Passives,
+    Port,
+    Voltage,
+    fold,
+    terminals_of,
+)
+from tauledger.errors import EngineError
+from tauledger.solution import Isolation, Samples
+
+Complex = NDArray[np.complex128]
+
+
+class Alone(Struct, frozen=True):
+    """The circuit of one instance; names of the voltage sources at its terminals, and of the forced currents."""
+
+    circuit: Circuit
+    terminals: tuple[str, ...]
+    holders: tuple[str, ...]
+    forced: tuple[str, ...]
+
+
+def alone(circuit: Circuit, isolation: Isolation) -> Alone:
+    """Build the circuit of one instance with its terminals held and its controlling currents forced.
+
+    Raises EngineError where the circuit has no such element, ValueError where voltages or currents do not fit to it.
+    """
+    element = next((e for e in circuit.elements if fold(e.name) == fold(isolation.element)), None)
+    if element is None:
+        raise EngineError(f"no element is called {isolation.element}")
+    ends = terminals_of(element)
+    if len(ends) != len(isolation.voltages) or len(element.references) != len(isolation.currents):
+        raise ValueError(f"{element.name} has {len(ends)} terminals and {len(element.references)} controlling currents")
+    number = {node: k for k, node in enumerate(ends, start=1)}
+    instance = replace(
+        element,
+        nodes=tuple(number[node] for node in element.nodes),
+        formula=_renumbered(element.formula, number),
+        parameters=tuple({**dict(element.parameters), **dict(isolation.parameters)}.items()),
+    )
+    held = [_source("V", f"{element.name}'held{k}", (k, 0), volt) for k, volt in enumerate(isolation.voltages, start=1)]
+    first = len(ends) + 1
+    forced = [
+        _source("I", f"{element.name}'forced{k}", (0, k), ampere) for k, ampere in enumerate(isolation.currents, first)
+    ]
+    sensors = [_source("V", name, (k, 0), 0.0) for k, name in enumerate(element.references, first)]
+    nothing = np.array([], dtype=np.int32)
+    made = Circuit(
+        title=circuit.title,
+        nodes=(GROUND, *(f"{element.name}'{k}" for k in range(1, first + len(forced)))),
+        passives=Passives("", (), nothing, nothing, np.array([], dtype=float), nothing, nothing),
+        elements=(instance, *held, *forced, *sensors),
+        models=tuple(model for model in circuit.models if model.name == element.model),
+        drive=(),
+        output=Port(GROUND),
+        temperature_c=circuit.temperature_c,
+        tnom_c=circuit.tnom_c,
+        options=circuit.options,
+    )
+    return Alone(
+        made,
+        tuple(circuit.nodes[node] for node in ends),
+        tuple(source.name for source in held),
+        tuple(source.name for source in forced),
+    )
+
+
+def samples(
+    isolation: Isolation, terminals: tuple[str, ...], frequency_hz: NDArray[np.float64], answers: Sequence[Complex]
+) -> Samples:
+    """Put the answers to unit AC together.
+
+    answers: for each held terminal, then each forced current, the currents through the holders (from the terminal into
+    ground) and the inner nodes' voltages, (n_terminals + n_inner, n_freq); an inner node that does not exist is NaN.
+    """
+    n = len(terminals)
+    driven = np.stack(answers, axis=-1).transpose(1, 0, 2)
+    exists = [k for k in range(len(isolation.inner)) if not np.all(np.isnan(driven[:, n + k, 0]))]
+    found = Samples(
+        element=isolation.element,
+        terminals=terminals,
+        frequency_hz=frequency_hz,
+        admittance=-driven[:, :n, :n],
+        current_gain=-driven[:, :n, n:],
+        inner=tuple(isolation.inner[k] for k in exists),
+        inner_gain=driven[:, [n + k for k in exists], :n],
+    )
+    for array in (found.admittance, found.current_gain, found.inner_gain):
+        if not np.all(np.isfinite(array)):
+            raise EngineError(f"ngspice's AC response of {isolation.element} alone is not finite")
+    return found
+
+
+def _source(letter: str, name: str, nodes: tuple[int, int], dc: float) -> Element:
+    return Element(letter, name, nodes, "", (("dc", dc),), 0, 0)
+
+
+def _renumbered(formula: Formula | None, number: dict[int, int]) -> Formula | None:
+    match formula:
+        case Voltage(plus=plus, minus=minus):
+            return Voltage(number[plus], number[minus])
+        case Apply(function=function, arguments=arguments):
+            return Apply(function, tuple(made for a in arguments if (made := _renumbered(a, number)) is not None))
+    return formula
