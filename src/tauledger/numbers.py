@@ -13,7 +13,7 @@ from msgspec import Struct
 from numpy.typing import NDArray
 
 from tauledger.circuit import Change, Circuit
-from tauledger.devices.catalogue import linearise, observations
+from tauledger.devices.catalogue import linearise
 from tauledger.devices.family import Device
 from tauledger.engine.client import Engine
 from tauledger.engine.grid import decades
@@ -75,7 +75,7 @@ def solve(
     Raises NetlistError or InputError where the circuit cannot be built, EngineError where ngspice gives no result.
     """
     circuit = elaborate(netlist, change, drive=drive, output=output)
-    bias = engine.bias(circuit, observations(circuit))
+    bias = engine.operating_point(circuit)
     linearised = linearise(circuit, bias)
     network = Network.from_parts(linearised.parts, output=circuit.output)
     numbers = solve_network(network, devices=linearised.devices, midband_hz=midband_hz)

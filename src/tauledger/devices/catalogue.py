@@ -2,14 +2,15 @@
 
 from __future__ import annotations
 
-from tauledger.circuit import Circuit
+from tauledger.circuit import Circuit, Element, Model
 from tauledger.devices.controlled import TRANSCONDUCTANCE
-from tauledger.devices.family import Device, Family, Linearised
+from tauledger.devices.family import Device, Family, Linearised, Refusal
 from tauledger.devices.gummel_poon import GUMMEL_POON
 from tauledger.devices.parts import Part
 from tauledger.devices.passives import CAPACITOR, INDUCTOR, RESISTOR, passive_part
 from tauledger.devices.sources import CURRENT_SOURCE, VOLTAGE_SOURCE
-from tauledger.solution import Bias, Observation
+from tauledger.errors import InputError
+from tauledger.solution import Bias, Isolation, Observation
 
 FAMILIES: tuple[Family, ...] = (
     RESISTOR,
@@ -22,15 +23,64 @@ FAMILIES: tuple[Family, ...] = (
 )
 
 
+def families_of(letter: str) -> tuple[Family, ...]:
+    """Give the families of an element letter (either case), in the order in which they are asked."""
+    return tuple(family for family in FAMILIES if family.letter == letter.upper())
+
+
 def family_of(letter: str) -> Family | None:
-    """Give the family of an element letter (either case), or None where no family has it."""
-    return next((family for family in FAMILIES if family.letter == letter.upper()), None)
+    """Give the first family of an element letter (either case), or None where no family has it."""
+    return next(iter(families_of(letter)), None)
+
+
+def choose(element: Element, model: Model | None) -> Family | Refusal:
+    """Give the family that takes this element, or the reason why none does.
+
+    Families are asked in the order of `FAMILIES`: those whose letter, model type and level fit, the first that does not
+    refuse. Where all of them refuse, the last one's reason counts: it is the one that could do most.
+    """
+    fitting = [family for family in families_of(element.letter) if _fits(family, model)]
+    if not fitting:
+        return Refusal("level", *_no_family(element, model))
+    refusal: Refusal | None = None
+    for family in fitting:
+        refusal = family.refuse(element, model)
+        if refusal is None:
+            return family
+    assert refusal is not None
+    return refusal
+
+
+def _fits(family: Family, model: Model | None) -> bool:
+    if model is None:
+        return not family.model_types or family.model_optional
+    return model.type in family.model_types and model.level in family.levels
+
+
+def _no_family(element: Element, model: Model | None) -> tuple[str, str]:
+    families = families_of(element.letter)
+    words = families[0].words if families else f"element of letter {element.letter}"
+    if model is None:
+        return f"a {words} without a model is not supported by this version", ""
+    known = sorted({level for family in families if model.type in family.model_types for level in family.levels})
+    if not known:
+        return f"a {words} with a model of type {model.type} is not supported by this version", ""
+    return (
+        f"level {model.level} of a {words} is not supported by this version",
+        f"supported: {', '.join(map(str, known))}",
+    )
 
 
 def observations(circuit: Circuit) -> tuple[Observation, ...]:
     """List what the engine must read at the operating point, in the order of the circuit's elements."""
-    asked = (_family(element.letter).observe(element) for element in circuit.elements)
+    asked = (_family(circuit, element).observe(element) for element in circuit.elements)
     return tuple(observation for observation in asked if observation is not None)
+
+
+def isolations(circuit: Circuit, bias: Bias) -> tuple[Isolation, ...]:
+    """List the instances that must be measured alone, at their operating point, in the order of the elements."""
+    asked = (_family(circuit, element).isolate(circuit, element, bias) for element in circuit.elements)
+    return tuple(isolation for isolation in asked if isolation is not None)
 
 
 def linearise(circuit: Circuit, bias: Bias) -> Linearised:
@@ -46,7 +96,7 @@ def linearise(circuit: Circuit, bias: Bias) -> Linearised:
         rows.append(((int(passives.path[k]), int(passives.card[k])), (part,)))
     devices: list[Device] = []
     for element in circuit.elements:
-        device = _family(element.letter).linearise(circuit, element, bias)
+        device = _family(circuit, element).linearise(circuit, element, bias)
         rows.append(((element.path, element.card), device.parts))
         if device.cell is not None or device.region:
             devices.append(device)
@@ -54,8 +104,8 @@ def linearise(circuit: Circuit, bias: Bias) -> Linearised:
     return Linearised(tuple(part for _, parts in rows for part in parts), tuple(devices))
 
 
-def _family(letter: str) -> Family:
-    family = family_of(letter)
-    if family is None:
-        raise KeyError(letter)
-    return family
+def _family(circuit: Circuit, element: Element) -> Family:
+    found = choose(element, circuit.model(element.model) if element.model else None)
+    if isinstance(found, Refusal):
+        raise InputError(f"{element.name}: {found.reason}", found.hint)
+    return found

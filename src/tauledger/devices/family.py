@@ -13,7 +13,7 @@ from msgspec import Struct
 
 from tauledger.circuit import Circuit, Element, Model
 from tauledger.devices.parts import Part
-from tauledger.solution import Bias, Observation
+from tauledger.solution import Bias, Isolation, Observation
 
 
 class Transconductor(Struct, frozen=True):
@@ -75,6 +75,11 @@ class Refusal(Struct, frozen=True):
     hint: str = ""
 
 
+def never_isolated(_circuit: Circuit, _element: Element, _bias: Bias) -> Isolation | None:
+    """The `isolate` of a family that is rebuilt from its readings or its card alone."""
+    return None
+
+
 class Family(Struct, frozen=True):
     """One device family, as its file in devices/ describes it.
 
@@ -85,7 +90,8 @@ class Family(Struct, frozen=True):
     may be missing. instance_parameters, model_parameters: names (folded) that ngspice accepts on the card and on
     the model.
     observe: what to read from the engine, or None for nothing. linearise: element at its bias → parts and figures.
-    refuse: a Refusal where this element or model cannot be rebuilt, else None.
+    refuse: a Refusal where this element or model cannot be rebuilt, else None. isolate: how the instance must be
+    measured alone, once the readings are there, or None. model_optional: the element may stand without a model.
     """
 
     letter: str
@@ -99,6 +105,8 @@ class Family(Struct, frozen=True):
     levels: tuple[int, ...] = ()
     instance_parameters: frozenset[str] = frozenset()
     model_parameters: frozenset[str] = frozenset()
+    isolate: Callable[[Circuit, Element, Bias], Isolation | None] = never_isolated
+    model_optional: bool = False
 
 
 class Linearised(Struct, frozen=True):

@@ -131,6 +131,21 @@ class Engine:
         except _NotConverged as error:
             raise EngineError(error.message, error.hint, error.engine_says) from error
 
+    def operating_point(self, circuit: Circuit) -> Bias:
+        """Solve the operating point with all that the device families want to know, instances measured alone included.
+
+        Raises what `bias` and `isolate` raise; InputError where no family takes an element.
+        """
+        from msgspec.structs import replace
+
+        from tauledger.devices.catalogue import isolations, observations
+
+        bias = self.bias(circuit, observations(circuit))
+        wanted = isolations(circuit, bias)
+        if not wanted:
+            return bias
+        return replace(bias, samples={asked.element: self.isolate(circuit, asked) for asked in wanted})
+
     def _bias(
         self, circuit: Circuit, observations: Sequence[Observation], deck: Deck, warnings: tuple[str, ...]
     ) -> Bias:
