@@ -239,11 +239,13 @@ def test_a_current_output_through_an_ammeter_keeps_its_branch() -> None:
     assert abs(bands.midband.gain) == pytest.approx(abs(find_midband(amplifiers.coupled_stage()).gain) / 10e3, rel=1e-6)
 
 
-def test_a_divider_of_capacitors_has_no_mid_band_network_and_says_so() -> None:
+def test_a_divider_of_capacitors_keeps_them_in_its_mid_band_network() -> None:
     network = amplifiers.network(
         resistance("RS", "in", "s", 1e3), capacitance("C1", "s", "out", 100e-12), capacitance("C2", "out", "0", 2e-10)
     )
-    assert not bands_of(network).sound
+    bands = bands_of(network)
+    assert bands.class_of == {"C1": "gain", "C2": "gain"}
+    assert bands.sound
 
 
 @settings(max_examples=25, deadline=None, derandomize=True)

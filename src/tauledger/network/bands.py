@@ -13,13 +13,14 @@ from tauledger.circuit import GROUND, Port, fold
 from tauledger.devices.parts import Part
 from tauledger.errors import NetworkError
 from tauledger.network.assemble import Network, assemble
+from tauledger.network.gain_setting import gain_setting
 from tauledger.network.midband import MidBand as MidBand
 from tauledger.network.midband import find_midband as find_midband
 from tauledger.network.reactances import Reactances, reactances, stamped
 from tauledger.network.solve import Complex, admittance, response
 from tauledger.network.spectrum import pole_frequencies
 
-BandClass = Literal["short", "open", "tuned"]
+BandClass = Literal["short", "open", "gain", "tuned"]
 
 SHORT_ABOVE = 1.0 / np.sqrt(2.0)
 TUNED_ABOVE = 1.3
@@ -30,12 +31,13 @@ BEYOND_ALL_POLES = 1e4
 class Bands(Struct, frozen=True):
     """The network seen from mid-band.
 
-    class_of: "short", "open" or "tuned" by part name, for every capacitance, transcapacitance and inductance.
+    class_of: "short", "open", "gain" or "tuned" by part name, for every capacitance, transcapacitance and inductance.
+    Capacitors of class "gain" set the mid-band gain and stay in all networks as they are.
     ratio: the r of the rule that decided, by part name, for every capacitance and inductance (0 at DC).
     repaired: capacitors shorted against the rule because only that restores the gain.
     merged: every node of the network → its node in `upper` (nodes joined by short capacitors share one; "0" wins).
-    upper: short capacitors merged, open inductors taken out; at s = 0 it is the mid-band network.
-    lower: open capacitors taken out, short inductors merged; for s → ∞ it is the mid-band network.
+    upper: short capacitors merged, open inductors taken out; at `s_mid` it is the mid-band network.
+    lower: open capacitors taken out, short inductors merged; for s → ∞ (with class "gain": at s_mid) likewise.
     sound: the real gain of the mid-band network is within 2 % of |H(f_mid)|; where not, no hand numbers, and where
     the merged network cannot even be built, upper and lower are the whole network.
     """
@@ -50,6 +52,16 @@ class Bands(Struct, frozen=True):
     sound: bool
     repaired: tuple[str, ...] = ()
 
+    @property
+    def gain_setting(self) -> frozenset[str]:
+        """Names of the capacitors that set the mid-band gain."""
+        return frozenset(name for name, kind in self.class_of.items() if kind == "gain")
+
+    @property
+    def s_mid(self) -> complex:
+        """Where the mid-band network is taken, rad/s: 0, or jω_mid where capacitors set the gain."""
+        return 2j * np.pi * self.midband.frequency_hz if self.gain_setting else 0j
+
 
 def classify(network: Network, midband: MidBand) -> Bands:
     """Decide for every capacitor and inductor whether it is a short or an open at mid-band, and build both networks.
@@ -59,26 +71,30 @@ def classify(network: Network, midband: MidBand) -> Bands:
     The limit is taken in the network of those capacitors that a first round with all of them found short; a capacitor
     that larger shorts bridge by way of a driven source counts for itself, r = |jωC·Z(jω)|.
     An inductor is open where the dual with the admittance of its branch exceeds 0.707. r > 1.3 is resonance: tuned.
+    Before that, a capacitor on which the mid-band gain depends is of class "gain" (gain_setting.py).
     The gain of the merged network is then compared with |H(f_mid)|; while it is more than 2 % off, the open capacitor
-    is shorted that halves the error at least.
+    is shorted (beside others of class "gain": or taken as one) that halves the error at least.
     """
     ratio = _ratios(network, midband.frequency_hz)
+    setting = gain_setting(network, midband)
     class_of: dict[str, BandClass] = {}
     for part in network.parts:
         if part.kind == "transcapacitance":
             class_of[part.name] = "open"
         elif part.kind in ("capacitance", "inductance"):
-            class_of[part.name] = _class(part, ratio[part.name])
+            class_of[part.name] = "gain" if part.name in setting else _class(part, ratio[part.name])
     error = _gain_error(network, midband, class_of)
     repaired: list[str] = []
     while midband.plateau and error > GAIN_TOLERANCE:
-        trials = [part.name for part in network.parts if part.kind == "capacitance" and class_of[part.name] == "open"]
-        errors = {name: _gain_error(network, midband, {**class_of, name: "short"}) for name in trials}
-        best = min(errors, key=lambda name: errors[name], default=None)
+        opens = [part.name for part in network.parts if part.kind == "capacitance" and class_of[part.name] == "open"]
+        kinds: tuple[BandClass, ...] = ("short", "gain") if setting else ("short",)
+        trials = [(name, kind) for name in opens for kind in kinds]
+        errors = {(name, kind): _gain_error(network, midband, {**class_of, name: kind}) for name, kind in trials}
+        best = min(errors, key=lambda trial: errors[trial], default=None)
         if best is None or errors[best] > error / 2.0:
             break
-        class_of[best], error = "short", errors[best]
-        repaired.append(best)
+        class_of[best[0]], error = best[1], errors[best]
+        repaired.append(best[0])
     merged = merged_nodes(network, class_of)
     try:
         upper, lower = upper_network(network, class_of, merged), lower_network(network, class_of)
@@ -114,19 +130,25 @@ def lower_network(network: Network, class_of: Mapping[str, BandClass]) -> Networ
     """
     open_capacitor = {"capacitance", "transcapacitance"}
     kept = [part for part in network.parts if part.kind not in open_capacitor or class_of[part.name] != "open"]
-    joined = [part for part in kept if _passes(network, part) and class_of[part.name] == "short"]
-    return _renamed(network, kept, joined_nodes(network, joined))
+    return _renamed(network, kept, lower_nodes(network, class_of))
+
+
+def lower_nodes(network: Network, class_of: Mapping[str, BandClass]) -> dict[str, str]:
+    """Give for every node the one that stands for all that short inductors join with it."""
+    joining = [part for part in network.parts if _passes(network, part) and class_of[part.name] == "short"]
+    return joined_nodes(network, joining)
 
 
 def midband_network(network: Network, class_of: Mapping[str, BandClass]) -> Network:
     """Merge all shorts and take out all opens, capacitors and inductors alike: what is left is resistive.
 
-    Tuned parts are taken as at DC. Raises NetworkError where nothing is left at the output.
+    Capacitors of class "gain" stay. Tuned parts are taken as at DC.
+    Raises NetworkError where nothing is left at the output.
     """
     kept = [
         part
         for part in network.parts
-        if part.kind not in ("capacitance", "transcapacitance")
+        if (part.kind not in ("capacitance", "transcapacitance") or class_of[part.name] == "gain")
         and (not _passes(network, part) or class_of[part.name] != "open")
     ]
     return _renamed(network, kept, midband_nodes(network, class_of))
@@ -231,10 +253,13 @@ def _limited(network: Network, s: complex, terms: Reactances, acting: set[str]) 
 
 
 def _gain_error(network: Network, midband: MidBand, class_of: Mapping[str, BandClass]) -> float:
-    """Give | |H of the merged network at s = 0| / |H(f_mid)| − 1 |, infinite where it has none."""
+    """Give | |H of the merged network at mid-band| / |H(f_mid)| − 1 |, infinite where it has none."""
     try:
-        upper = upper_network(network, class_of, merged_nodes(network, class_of))
-        gain = abs(response(upper, np.zeros(1))[0])
+        upper, frequency_hz = upper_network(network, class_of, merged_nodes(network, class_of)), 0.0
+        if "gain" in class_of.values():
+            kept = [part for part in upper.parts if class_of.get(part.name, "gain") != "open" or _passes(upper, part)]
+            upper, frequency_hz = assemble(tuple(kept), upper.port, upper.amplitudes), midband.frequency_hz
+        gain = abs(response(upper, np.array([frequency_hz]))[0])
     except NetworkError:
         return float("inf")
     return float(abs(gain / abs(midband.gain) - 1.0))

@@ -3,6 +3,8 @@
 On the upper network Z = G⁻¹ is the mid-band impedance matrix. A part sees R⁰ = controlᵀ Z out across itself while all
 others have no value; τ = R⁰·C, and b1 = Σ τ = tr(ZC) = −Σ 1/p exactly. Its weight w = 1 − H^i/H^0 compares the
 mid-band gain with the part shorted (an inductance opened) and without it; Σ w·τ = b1 − a1 is the group delay at s = 0.
+Where capacitors set the gain, all is taken at s₀ = jω_mid, with the poles above it alone and real parts:
+Σ τ = Re tr(ZC) = Re Σ 1/(s₀ − p), and Σ w·τ is the group delay there.
 
 Sources: Gray, Hurst, Lewis and Meyer, "Analysis and Design of Analog Integrated Circuits", 5th ed., 2009, section
 7.3 (zero-value time constants); Hajimiri, "Generalized time- and transfer-constant circuit analysis", IEEE Trans.
@@ -17,8 +19,9 @@ from msgspec import Struct
 from tauledger.circuit import GROUND
 from tauledger.devices.parts import PartKind
 from tauledger.errors import NetworkError
-from tauledger.network.assemble import Network
+from tauledger.network.assemble import Network, incidence
 from tauledger.network.bands import Bands
+from tauledger.network.gain_setting import impedance, impedance_above
 from tauledger.network.reactances import moments, reactances
 from tauledger.network.solve import Complex, Real, on_axis, solve, times
 from tauledger.network.spectrum import pole_frequencies
@@ -30,14 +33,16 @@ IN_PATH_MOMENT = 0.005
 class MidBandInverse(Struct, frozen=True):
     """Z = G⁻¹ of a resistive network and its signal solution: z (n, n), x (n,) complex, adjoint (n,), gain H.
 
-    x is driven by the sources; adjoint is Gᵀ⁻¹ e. Z and x are meant at s = 0.
+    x is driven by the sources; adjoint is Gᵀ⁻¹ e. Z and x are meant at s = 0. Where capacitors set the gain they are
+    meant at s₀ = jω_mid, z is the real part of the impedance of the poles above it, and `whole` all of Z(s₀).
     """
 
     network: Network
     z: Real
     x: Complex
-    adjoint: Real
+    adjoint: Real | Complex
     gain: complex
+    whole: Real | Complex
 
     def impedance(self, at: str, into: str) -> float:
         """Give the voltage at node `at` for 1 A into node `into`, in ohm; 0 where either is ground."""
@@ -58,12 +63,17 @@ class MidBandInverse(Struct, frozen=True):
         row = self.network.index(node)
         return 0j if row is None else complex(self.x[row])
 
+    def whole_across(self, plus: str, minus: str) -> complex:
+        """Give the complex impedance between two nodes in ohm, drive nulled."""
+        d = incidence(self.network, plus, minus)
+        return complex(d @ self.whole @ d)
+
     def crossing(self, node: str) -> float:
         """Give ρ = x·λ/(Z_nn·H), the relative gain lost if the node is shorted to ground; 0 where nothing can be."""
         row = self.network.index(node)
         if row is None or self.z[row, row] == 0.0:
             return 0.0
-        return float((self.x[row] * self.adjoint[row] / (self.z[row, row] * self.gain)).real)
+        return float((self.x[row] * self.adjoint[row] / (self.whole[row, row] * self.gain)).real)
 
 
 class OpenConstant(Struct, frozen=True):
@@ -71,7 +81,8 @@ class OpenConstant(Struct, frozen=True):
 
     resistance_ohm: R⁰ across it (a transfer impedance for a transcapacitance; for an inductance the resistance that
     its terminals face, infinite where they face none). time_constant_s: R⁰·C, for an inductance L/R.
-    weight: 1 − H^i/H^0. in_path: it counts in the path's sums; where not, it is decoupling.
+    weight: 1 − H^i/H^0. in_path: it counts in the path's sums; where not, it is decoupling. delay_s: w·τ, its part of
+    the group delay.
     """
 
     name: str
@@ -82,12 +93,15 @@ class OpenConstant(Struct, frozen=True):
     time_constant_s: float
     weight: float
     in_path: bool
+    delay_s: float = 0.0
 
 
 class OpenConstants(Struct, frozen=True):
     """The ledger of the upper network at s = 0.
 
     sum_s: Σ τ over all parts. inverse_pole_sum_s: −Σ 1/p. weighted_sum_s: Σ w·τ. group_delay_s: −dφ/dω of H.
+    Where capacitors set the gain, the first two are those of the poles above mid-band, at s = jω_mid, and the other
+    two hold the poles below as well.
     b1_s, b2_s2: coefficients of the denominator 1 + b1·s + b2·s² + …
     node_time_constant_s: τ_i = Σ_k C_ik Z_ki by node of the upper network; branch_time_constant_s: those of the
     inductors' branch currents by owner. All of them add to b1.
@@ -116,21 +130,27 @@ def midband_inverse(bands: Bands) -> MidBandInverse:
 
     Raises NetworkError where G of the upper network is singular.
     """
-    return inverse(bands.upper)
+    return inverse(bands.upper, bands.s_mid)
 
 
-def inverse(network: Network) -> MidBandInverse:
-    """Give G⁻¹ of any network with its signal solution at s = 0.
+def inverse(network: Network, s: complex = 0.0) -> MidBandInverse:
+    """Give G⁻¹ of any network with its signal solution at s = 0, or what stands in its place at s = jω_mid.
 
-    Raises NetworkError where G is singular.
+    Raises NetworkError where G, or G + s·C, is singular.
     """
+    if s:
+        whole = impedance(network, s)
+        at = np.asarray(network.output @ whole, dtype=np.complex128)
+        return MidBandInverse(
+            network, impedance_above(network, s).real, whole @ network.drive, at, complex(at @ network.drive), whole
+        )
     try:
         z = np.asarray(np.linalg.inv(network.conductance.dense(network.size)), dtype=np.float64)
     except np.linalg.LinAlgError as error:
         raise NetworkError("the mid-band network has no unique solution") from error
     x = (z @ network.drive).astype(complex)
     adjoint = np.asarray(z.T @ network.output, dtype=np.float64)
-    return MidBandInverse(network, z, x, adjoint, complex(network.output @ x))
+    return MidBandInverse(network, z, x, adjoint, complex(network.output @ x), z)
 
 
 def open_constants(bands: Bands) -> OpenConstants:
@@ -141,16 +161,18 @@ def open_constants(bands: Bands) -> OpenConstants:
     less than 1 %.
     Raises NetworkError where G of the upper network is singular.
     """
-    upper = bands.upper
+    upper, s = bands.upper, bands.s_mid
     mid = midband_inverse(bands)
     terms = reactances(upper)
-    solution = solve(upper, on_axis(0.0))
+    solution = solve(upper, np.array([s]))
     tau: Real = terms.value * np.sum(terms.control * (mid.z @ terms.out), axis=0)
-    moment: Real = moments(terms, solution)[0].real
+    whole = tau if not s else terms.value * np.sum(terms.control * (mid.whole @ terms.out), axis=0)
+    delayed = moments(terms, solution)[0]
+    moment: Real = delayed.real
     total = float(np.sum(np.abs(moment)))
     rows = []
     for k, part in enumerate(terms.parts):
-        weight = float(moment[k] / tau[k]) if tau[k] != 0.0 else 0.0
+        weight = float((delayed[k] / whole[k]).real) if whole[k] != 0.0 else 0.0
         rows.append(
             OpenConstant(
                 name=part.name,
@@ -161,6 +183,7 @@ def open_constants(bands: Bands) -> OpenConstants:
                 time_constant_s=float(tau[k]),
                 weight=weight,
                 in_path=abs(weight) >= IN_PATH_WEIGHT or abs(float(moment[k])) > IN_PATH_MOMENT * total,
+                delay_s=float(moment[k]),
             )
         )
     c = upper.capacitance.dense(upper.size)
@@ -168,13 +191,14 @@ def open_constants(bands: Bands) -> OpenConstants:
     b1 = float(np.trace(zc))
     diagonal = np.sum(c * mid.z.T, axis=1)
     poles = pole_frequencies(upper)
+    poles = poles[np.abs(poles) > abs(s)]
     n = upper.n_nodes
     return OpenConstants(
         parts=tuple(rows),
         sum_s=float(np.sum(tau)),
-        inverse_pole_sum_s=float(-np.sum(1.0 / poles).real) if len(poles) else 0.0,
+        inverse_pole_sum_s=float(np.sum(1.0 / (s - poles)).real) if len(poles) else 0.0,
         weighted_sum_s=float(np.sum(moment)),
-        group_delay_s=_group_delay_at_dc(upper),
+        group_delay_s=_group_delay(upper, s),
         b1_s=b1,
         b2_s2=0.5 * (b1 * b1 - float(np.sum(zc * zc.T))),
         node_time_constant_s={node: float(diagonal[i]) for i, node in enumerate(upper.unknowns[:n])},
@@ -195,8 +219,8 @@ def group_delay(network: Network, frequency_hz: float) -> dict[str, float]:
     return {name: float(value) for name, value in zip(terms.names, delay, strict=True)}
 
 
-def _group_delay_at_dc(network: Network) -> float:
-    solution = solve(network, on_axis(0.0))
+def _group_delay(network: Network, s: complex) -> float:
+    solution = solve(network, np.array([s]))
     return float((np.sum(solution.adjoint * times(network.capacitance, solution.x)) / solution.response[0]).real)
 
 

@@ -56,17 +56,17 @@ def check(identities: Iterable[Identity]) -> tuple[Identity, ...]:
 
 
 def open_identities(constants: OpenConstants) -> tuple[Identity, ...]:
-    """Σ τ = tr(ZC) = Σ of the node constants = −Σ 1/p of the upper network, and Σ w·τ = group delay at s = 0."""
+    """Σ τ = tr(ZC) = Σ of the node constants = −Σ 1/p of the upper network, and Σ w·τ = group delay at mid-band."""
     scale = sum(abs(part.time_constant_s) for part in constants.parts)
     by_node = sum(constants.node_time_constant_s.values()) + sum(constants.branch_time_constant_s.values())
-    weighted = sum(abs(part.weight * part.time_constant_s) for part in constants.parts)
+    weighted = sum(abs(part.delay_s) for part in constants.parts)
     return (
         Identity("sum of time constants = trace of ZC", constants.sum_s, constants.b1_s, SUMS, scale),
         Identity("node rows add to the trace of ZC", by_node, constants.b1_s, SUMS, scale),
         Identity("sum of time constants = -sum of 1/p", constants.sum_s, constants.inverse_pole_sum_s, POLES, scale),
         Identity(
-            "weighted sum = group delay at DC",
-            sum(part.weight * part.time_constant_s for part in constants.parts),
+            "weighted sum = group delay",
+            sum(part.delay_s for part in constants.parts),
             constants.group_delay_s,
             SUMS,
             weighted,

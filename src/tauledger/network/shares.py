@@ -44,7 +44,7 @@ class Shares(Struct, frozen=True):
 def find_shares(network: Network, midband: MidBand, edge_hz: float, class_of: Mapping[str, BandClass]) -> Shares:
     """Give every part's and every node's share in the band edge at edge_hz.
 
-    class_of: the class at mid-band by part name; only open capacitances and transcapacitances count in the nodes' rows.
+    class_of: the class at mid-band by part name; those that are open, or set the gain, count in the nodes' rows.
     Raises NetworkError where the network has no unique solution there.
     """
     at = solve(network, on_axis(np.array([edge_hz, midband.frequency_hz])))
@@ -57,7 +57,8 @@ def find_shares(network: Network, midband: MidBand, edge_hz: float, class_of: Ma
 
     terms = reactances(network)
     of_parts = share(moments(terms, at))
-    open_value = [0.0 if p.kind == "inductance" or class_of[p.name] != "open" else p.value for p in terms.parts]
+    acts = ("open", "gain")
+    open_value = [p.value if p.kind != "inductance" and class_of[p.name] in acts else 0.0 for p in terms.parts]
     opened = (terms.out * np.array(open_value)) @ terms.control.T
     n = network.n_nodes
     per_response = at.adjoint / at.response[:, None]
