@@ -19,6 +19,7 @@ from tauledger.hand.budget import part_resistances, signal_nodes
 from tauledger.hand.combine import Combined, combine_lower, combine_upper
 from tauledger.hand.effects import pole_effects
 from tauledger.hand.estimate import HandEstimate
+from tauledger.hand.halves import images
 from tauledger.hand.lower import lower_rows
 from tauledger.hand.methods import methods
 from tauledger.hand.poles import HandPole, hand_poles
@@ -94,6 +95,7 @@ def explain(numbers: Numbers) -> Explanation:
         upper=_evidence("f_high", edges.f_high, hand, upper),
         lower=_evidence("f_low", edges.f_low, hand, lower),
         stepped=numbers.bias is not None and numbers.bias.stepped,
+        images=images(hand.nodes) if hand else {},
     )
     effects: dict[complex, float] = {}
     for combined, is_lower in ((upper, False), (lower, True)):
@@ -144,8 +146,14 @@ def _by_hand(numbers: Numbers) -> tuple[HandEstimate, Combined, Combined]:
     high, low = (edge.hz if edge is not None else None for edge in (edges.f_high, edges.f_low))
     nodes, capacitors = signal_nodes(bands, devices), lower_rows(bands, devices)
     upper_poles, lower_poles = pole_frequencies(bands.upper), pole_frequencies(bands.lower)
-    upper = combine_upper(nodes, upper_poles, zero_frequencies(bands.upper, upper_poles))
-    lower = combine_lower(capacitors, lower_poles, zero_frequencies(bands.lower, lower_poles))
+    upper_zeros, lower_zeros = zero_frequencies(bands.upper, upper_poles), zero_frequencies(bands.lower, lower_poles)
+    if bands.gain_setting:
+        # Both networks hold the capacitors that set the gain, and with them poles of both edges.
+        omega = abs(bands.s_mid)
+        upper_poles, upper_zeros = (roots[np.abs(roots) > omega] for roots in (upper_poles, upper_zeros))
+        lower_poles, lower_zeros = (roots[np.abs(roots) < omega] for roots in (lower_poles, lower_zeros))
+    upper = combine_upper(nodes, upper_poles, upper_zeros)
+    lower = combine_lower(capacitors, lower_poles, lower_zeros)
     hand = HandEstimate(
         nodes=nodes,
         lower=capacitors,

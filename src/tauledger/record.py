@@ -178,6 +178,8 @@ class NodeRow(Struct, frozen=True):
     name: the netlist's node. title: as the trade says it, "base of Q1 (b)". per_farad: ∂f/∂C in Hz/F for
     capacitance to ground.
     in_path: the row counts in the hand estimate.
+    image: in a balanced circuit, worked as half circuits, the same node of the other half; second: this is that of the
+    second half, and counts in no sum.
     """
 
     name: str
@@ -193,6 +195,8 @@ class NodeRow(Struct, frozen=True):
     share: EdgePair
     per_farad: EdgePair
     working: Working | None
+    image: str = ""
+    second: bool = False
 
 
 class TenPercent(Struct, frozen=True):

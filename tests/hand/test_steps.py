@@ -173,12 +173,17 @@ def test_no_poles_no_steps() -> None:
     assert lower_steps([], combine_lower([], NONE, NONE), full_hz=None) == ()
 
 
-def test_cancelled_poles_are_named_where_they_are_left_out() -> None:
-    nodes = [plain_node("a", 1e-7), plain_node("b", 1e-9)]
+def test_cancelled_poles_are_named_only_where_the_rows_hold_them() -> None:
+    """A supply node's pole is under its zero and its row does not count: nobody misses it."""
     poles = np.array([-2.08e4, -1e7, -1e9], dtype=complex)
-    steps = upper_steps(nodes, combine_upper(nodes, poles, np.array([-2.0801e4 + 0j])), full_hz=1.59e6)
-    assert "cancelled by a zero each and left out: the pole at 3.31 kHz" in steps[3].why
+    zero = np.array([-2.0801e4 + 0j])
+    aside = [plain_node("a", 1e-7), plain_node("b", 1e-9)]
+    steps = upper_steps(aside, combine_upper(aside, poles, zero), full_hz=1.59e6)
+    assert not any("cancelled" in step.why for step in steps)
     assert steps[3].hz == pytest.approx(1.59e6, rel=1e-2)
+    counted = [*aside, plain_node("c", 1 / 2.08e4)]
+    steps = upper_steps(counted, combine_upper(counted, poles, zero), full_hz=1.59e6)
+    assert any("cancelled by a zero each and left out: the pole at 3.31 kHz" in step.why for step in steps)
 
 
 def test_pulling_nodes_are_given_with_their_q() -> None:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Mapping
 
 from msgspec import Struct
 
@@ -15,6 +16,8 @@ from tauledger.hand.halves import counted
 from tauledger.network.bands import Bands
 from tauledger.network.solve import Complex
 from tauledger.quantity import engineering
+
+GREEK = {"pi": "π", "mu": "μ"}
 
 
 class EdgeEvidence(Struct, frozen=True):
@@ -40,6 +43,7 @@ class Evidence(Struct, frozen=True):
     """One reviewed network.
 
     poles, zeros: of the full network in rad/s (n,), (m,). devices: empty where the network was not read from a netlist.
+    images: the node of the other half by that of the first, where a balanced circuit is worked as half circuits.
     stepped: the engine found the operating point only by stepping.
     """
 
@@ -52,6 +56,7 @@ class Evidence(Struct, frozen=True):
     upper: EdgeEvidence
     lower: EdgeEvidence
     stepped: bool = False
+    images: Mapping[str, str] = {}
 
 
 def move(edge: EdgeEvidence, later: str, earlier: str) -> float | None:
@@ -90,8 +95,11 @@ def nearest_zero(edge: EdgeEvidence) -> complex | None:
 
 
 def in_words(part: Part) -> str:
-    """Name a part as the trade does: "CL" for a card, "C_mu of Q1" inside a device."""
-    return f"{part.label[0].upper()}{part.label[1:]} of {part.owner}" if part.label else part.owner
+    """Name a part as the trade does: "CL" for a card, "C_μ of Q1" inside a device."""
+    if not part.label:
+        return part.owner
+    head, _, tail = part.label.partition("_")
+    return f"{head.upper()}{'_' if tail else ''}{GREEK.get(tail, tail)} of {part.owner}"
 
 
 def hertz(omega: complex) -> float:

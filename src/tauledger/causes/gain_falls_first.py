@@ -86,12 +86,15 @@ def _gain(evidence: Evidence, line: InnerLine, term: MillerTerm, omega: float) -
     other = ends - {here, GROUND}
     if here not in ends or len(other) != 1:
         return None
-    return _driven_gain(upper, here, other.pop(), omega)
+    return driven_gain(upper, here, other.pop(), omega, evidence.images.get(here))
 
 
-def _driven_gain(network: Network, here: str, other: str, omega: float) -> complex:
+def driven_gain(network: Network, here: str, other: str, omega: float, opposite: str | None = None) -> complex:
+    """Give K = v(other)/v(here) at jω with a current into `here`, and out of its image in the other half if any."""
     i, j = network.index(here), network.index(other)
     injected = np.zeros(network.size)
     injected[i] = 1.0
+    if opposite is not None:
+        injected[network.index(opposite)] = -1.0
     v = np.linalg.solve(admittance(network, np.array([1j * omega]))[0], injected)
     return complex(v[j] / v[i])

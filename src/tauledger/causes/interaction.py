@@ -6,6 +6,7 @@ from tauledger.causes.cause import Cause
 from tauledger.causes.complex_poles import complex_poles_above, complex_poles_below
 from tauledger.causes.evidence import EdgeEvidence, Evidence, hertz, in_hertz, move, outward
 from tauledger.causes.gain_falls_first import gain_falls_first
+from tauledger.hand.poles import SEPARATED
 from tauledger.record import NamedNumber
 
 SPLITTING = 0.5
@@ -40,6 +41,9 @@ def _interaction(edge: EdgeEvidence) -> Cause | None:
     thing = "capacitances" if edge.edge == "f_high" else "coupling and bypass capacitors"
     coefficients = ("1/b1", "b1/b2") if edge.edge == "f_high" else ("a1", "a2/a1")
     instead = f"give no capacitor a pole of its own: {coefficients[0]} is the first, {coefficients[1]} the second"
+    if combined.coefficients.separation <= SEPARATED and combined.two_coefficients is not None:
+        both = "b1 and b2" if edge.edge == "f_high" else "a1 and a2"
+        instead = f"give no capacitor a pole of its own: {both} together give {in_hertz(combined.two_coefficients)}"
     return Cause(
         cause="interaction",
         quantity=edge.quantity,

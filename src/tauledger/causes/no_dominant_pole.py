@@ -10,6 +10,7 @@ from tauledger.record import NamedNumber
 DOMINANT = 10.0 + 2.0 + 0.1
 ZERO_FAR = 5.0
 THIRD_COUNTS = 30.0
+DOMINATES = 8.0
 
 
 def no_dominant_pole_above(evidence: Evidence) -> Cause | None:
@@ -38,6 +39,7 @@ def _no_dominant_pole(edge: EdgeEvidence) -> Cause | None:
         apart = f"{in_hertz(first)}, {in_hertz(second)} and {in_hertz(hertz(poles[2]))} add up"
     else:
         apart = f"{in_hertz(first)} and {in_hertz(second)} are {_ratio(first, second):.2g} to 1"
+    lead = "no pole dominates" if _ratio(first, second) < DOMINATES else "the poles beyond the first count too"
     off = f"{abs(100 * effect):.2g} % {'low' if effect < 0 else 'high'}"
     instead = "solve the quadratic"
     if combined.two_coefficients is not None:
@@ -47,7 +49,7 @@ def _no_dominant_pole(edge: EdgeEvidence) -> Cause | None:
         quantity=edge.quantity,
         effect=effect,
         where=f"poles at {in_hertz(first)} and {in_hertz(second)}",
-        says=f"no pole dominates: {apart}, so the {kind} sum, {in_hertz(combined.sum_of_constants)}, comes out {off}",
+        says=f"{lead}: {apart}, so the {kind} sum, {in_hertz(combined.sum_of_constants)}, comes out {off}",
         instead=instead,
         numbers=(
             NamedNumber("first pole", first, "Hz"),

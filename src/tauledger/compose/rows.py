@@ -51,7 +51,9 @@ def part_rows(numbers: Numbers, explanation: Explanation) -> tuple[PartRow, ...]
         open_row, short_row = opened.get(part.name), shorted.get(part.name)
         less = explanation.ten_percent_less.get(part.name, EdgeFrequencies(None, None))
         by_hand = explanation.hand.part_resistance.get(part.name) if explanation.hand else None
-        hand_ohm = by_hand.ohm if by_hand is not None else _lower_hand(explanation, part.name)
+        sets_gain = numbers.bands.class_of[part.name] == "gain" and short_row is not None
+        hand_ohm = by_hand.ohm if by_hand is not None and not sets_gain else _lower_hand(explanation, part.name)
+        hand_ohm = _finite(hand_ohm) if sets_gain else hand_ohm
         rows.append(
             PartRow(
                 name=part.name,
@@ -63,7 +65,7 @@ def part_rows(numbers: Numbers, explanation: Explanation) -> tuple[PartRow, ...]
                 in_path=_in_path(open_row, short_row),
                 weight=_weight(open_row, short_row),
                 resistance_hand_ohm=hand_ohm,
-                resistance_exact_ohm=_finite(_resistance(open_row, short_row)),
+                resistance_exact_ohm=_finite(_resistance(None if sets_gain else open_row, short_row)),
                 time_constant_s=_finite(_time_constant(open_row, short_row)),
                 edge_hz=_finite(short_row.edge_hz) if short_row else None,
                 zero_hz=_finite(short_row.zero_hz) if short_row else None,
@@ -106,7 +108,7 @@ def pole_facts(numbers: Numbers, explanation: Explanation) -> tuple[PoleFacts, .
                 imag_hz=pole.s.imag / (2.0 * math.pi),
                 hand_hz=told.hz if told else None,
                 hand_formula=told.formula if told else "",
-                effect=_effect(pole.s, explanation),
+                effect=None if pole.cancelled else _effect(pole.s, explanation),
                 owners=tuple(Owner(part, share) for part, share in owners if abs(share) >= OWNS_SOMETHING),
                 cancelled=pole.cancelled,
                 f0_hz=pole.f0_hz,
@@ -141,6 +143,8 @@ def _node_row(node: SignalNode, explanation: Explanation) -> NodeRow:
         share=EdgePair(_node_share(explanation.shares_high, node), None),
         per_farad=EdgePair(_per_farad(explanation.shares_high, node), _per_farad(explanation.shares_low, node)),
         working=_working(node),
+        image=node.image,
+        second=node.second,
     )
 
 

@@ -113,7 +113,7 @@ def branches(circuit: EquivalentCircuit, node: str, without: frozenset[Element],
             continue
         symbol = resistor.name
         if beyond.ohm:
-            symbol = f"({symbol} + {beyond.symbol})" if beyond.terms == 1 else f"({symbol} + ({beyond.symbol}))"
+            symbol = f"({symbol} + {bare(beyond.symbol)})" if beyond.terms == 1 else f"({symbol} + ({beyond.symbol}))"
         passive.append(Branch(resistor.name, resistor.ohm + beyond.ohm, symbol, "", far, resistor.ohm))
     walk.path.pop()
     return [*passive, *found]
@@ -259,7 +259,7 @@ def _by_rule(
             continue
         if symbol in seen:
             value = plain(seen[symbol].ohm)
-            written = seen[symbol].symbol
+            written = bare(seen[symbol].symbol)
             shown.append(f"{symbol} = {value}" if written in (value, "0", "∞") else f"{symbol} = {written} = {value}")
         else:
             write = compact if symbol in ("gm", "g_mb") else plain
@@ -284,6 +284,18 @@ def carrying(found: Sequence[Branch]) -> list[Branch]:
     """List the branches that carry at least 0.1 % of the conductance: those worth printing."""
     ohm = abs(total(found))
     return [branch for branch in found if ohm >= NOT_PRINTED * abs(branch.ohm)]
+
+
+def bare(symbol: str) -> str:
+    """Take the brackets off a sum that stands alone: "(RC + r_c(Q1))" → "RC + r_c(Q1)"."""
+    if not (symbol.startswith("(") and symbol.endswith(")")):
+        return symbol
+    depth = 0
+    for k, letter in enumerate(symbol):
+        depth += (letter == "(") - (letter == ")")
+        if depth == 0 and k < len(symbol) - 1:
+            return symbol
+    return symbol[1:-1]
 
 
 def close(value: float, exact: float, tolerance: float) -> bool:

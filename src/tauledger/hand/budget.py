@@ -8,6 +8,8 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 
+from msgspec.structs import replace
+
 from tauledger.circuit import GROUND
 from tauledger.devices.family import Device
 from tauledger.hand.elements import Capacitor
@@ -16,6 +18,7 @@ from tauledger.hand.estimate import InnerLine, LookingIn, Resistance, SignalNode
 from tauledger.hand.figures import plain
 from tauledger.hand.looking_in import looking_in
 from tauledger.hand.miller import hand_gain, miller_term
+from tauledger.hand.mirror import find_mirror, half_circuit
 from tauledger.hand.nodes import Group, Passage, groups, node_name, passages
 from tauledger.network.bands import Bands
 
@@ -27,9 +30,30 @@ LEAST_SURE: tuple[WorkingSource, ...] = ("rule", "loop", "branch", "solved")
 def signal_nodes(bands: Bands, devices: tuple[Device, ...]) -> tuple[SignalNode, ...]:
     """Give the rows of the upper budget in the order of the file, those off the path included.
 
+    A balanced circuit is worked as two half circuits, and nodes on its axis are off the path.
     Raises NetworkError where the mid-band circuit has no unique solution.
     """
     circuit = upper_circuit(bands, devices)
+    mirror = find_mirror(circuit)
+    if mirror is None:
+        return _rows(circuit)
+    first = _rows(half_circuit(circuit, mirror))
+    second = _rows(half_circuit(circuit, mirror.other))
+    at = {member: row for row in (*first, *second) for member in row.members}
+    image = {**mirror.image, **mirror.other.image}
+    found: dict[str, SignalNode] = {}
+    for group in groups(circuit):
+        node = group.nodes[0]
+        if node in mirror.axis:
+            found[group.name] = replace(_row(circuit, group, Passage(0.0, 0.0, False)), crossing=0.0)
+            continue
+        row = at[circuit.members[node][0]]
+        partner = at[circuit.members[image[node]][0]]
+        found[row.name] = replace(row, image=partner.name, second=node not in mirror.image)
+    return tuple(found.values())
+
+
+def _rows(circuit: EquivalentCircuit) -> tuple[SignalNode, ...]:
     rows = groups(circuit)
     passed = passages(circuit, rows)
     return tuple(_row(circuit, row, passed[row.name]) for row in rows)

@@ -70,12 +70,16 @@ class Cell(Struct, frozen=True):
 
 
 class Capacitor(Struct, frozen=True):
-    """One open capacitance between hand nodes; `part` is its name, farad its value."""
+    """One open capacitance between hand nodes; `part` is its name, farad its value.
+
+    mirrored: in a half circuit, it leads to the mirror image of `a`, which moves the opposite way; b is ground then.
+    """
 
     part: str
     a: str
     b: str
     farad: float
+    mirrored: bool = False
 
 
 class TerminalAt(Struct, frozen=True):

@@ -30,6 +30,7 @@ from tauledger.hand.elements import (
 )
 from tauledger.network.assemble import Network
 from tauledger.network.bands import Bands
+from tauledger.network.gain_setting import impedance_below
 
 
 class EquivalentCircuit(Struct, frozen=True):
@@ -37,10 +38,11 @@ class EquivalentCircuit(Struct, frozen=True):
 
     at: every node of the whole network → its hand node, "0" for ground, supplies and driven nodes. driven: those
     of the whole network's nodes that a source moves. members: hand node → nodes of the whole network, file order.
-    nodes: the n live hand nodes. impedance Z: (n, n) ohm, input nulled. voltage x, adjoint λ, injected: (n,) complex;
+    nodes: the n live hand nodes. impedance Z: (n, n) ohm, input nulled. whole: the same, complex, at s_mid, which is 0
+    but where capacitors set the gain; impedance is then Re Z of the poles above s_mid. voltage x, adjoint λ, injected: (n,) complex;
     injected is the drive as a Norton current into each live node, A. response H.
     inner_names: nodes of the whole network behind a series resistance. output_nodes: netlist nodes of the output.
-    constant: (n,) diagonal of C·Z, s. moment: (n,) λ_i·(C·x)_i / H, s. floating: live nodes without any DC path.
+    products: (n, n) C·Z, s. charge: (n,) C·x per ω, C. floating: live nodes without any DC path.
     """
 
     at: Mapping[str, str]
@@ -54,16 +56,28 @@ class EquivalentCircuit(Struct, frozen=True):
     inner_names: frozenset[str]
     output_nodes: tuple[str, ...]
     impedance: NDArray[np.float64]
+    whole: NDArray[np.complex128]
+    s_mid: complex
     voltage: NDArray[np.complex128]
     adjoint: NDArray[np.complex128]
     injected: NDArray[np.complex128]
     response: complex
-    constant: NDArray[np.float64]
-    moment: NDArray[np.complex128]
+    products: NDArray[np.float64]
+    charge: NDArray[np.complex128]
     floating: frozenset[str]
     row: Mapping[str, int]
     resistors_at: Mapping[str, tuple[int, ...]]
     cells_at: Mapping[str, tuple[int, ...]]
+
+    @property
+    def constant(self) -> NDArray[np.float64]:
+        """(n,) diagonal of C·Z, s: the exact time constant of every node."""
+        return np.asarray(np.diagonal(self.products), dtype=float)
+
+    @property
+    def moment(self) -> NDArray[np.complex128]:
+        """(n,) λ_i·(C·x)_i / H, s: what every node adds to the first moment; 0 where there is no response."""
+        return self.adjoint * self.charge / self.response if self.response else np.zeros_like(self.adjoint)
 
     @property
     def output_hand(self) -> tuple[str, str]:
@@ -85,7 +99,7 @@ class EquivalentCircuit(Struct, frozen=True):
 
     def gain(self, start: str, end: str) -> float:
         """Exact K = Z_end,start / Z_start,start: the gain driven from the node itself; 0 where the end is ground."""
-        return 0.0 if end == GROUND else self.z(end, start) / self.z(start, start)
+        return 0.0 if end == GROUND or not self.z(start, start) else self.z(end, start) / self.z(start, start)
 
 
 def upper_circuit(bands: Bands, devices: tuple[Device, ...]) -> EquivalentCircuit:
@@ -93,7 +107,7 @@ def upper_circuit(bands: Bands, devices: tuple[Device, ...]) -> EquivalentCircui
 
     Raises NetworkError where a node has no path for direct current, or the circuit no unique solution.
     """
-    circuit = equivalent_circuit(bands.upper, bands.merged, devices, bands.network)
+    circuit = equivalent_circuit(bands.upper, bands.merged, devices, bands.network, bands.s_mid)
     if circuit.floating:
         raise NetworkError(f"node {min(circuit.floating)} hangs on capacitors alone at mid-band")
     return circuit
@@ -135,19 +149,20 @@ def joined(network: Network, shorted: Collection[str], removed: Collection[str])
 
 
 def equivalent_circuit(
-    network: Network, merged: Mapping[str, str], devices: tuple[Device, ...], whole: Network
+    network: Network, merged: Mapping[str, str], devices: tuple[Device, ...], whole: Network, s: complex = 0j
 ) -> EquivalentCircuit:
     """Draw a network whose capacitances are all open as a hand circuit.
 
     merged: every node of the whole network → its node in `network`. whole: that network; its names are the
-    user's.
+    user's. s: jω_mid where capacitors set the gain; the matrices are then taken there with the capacitances in place,
+    the impedances as real parts of what the poles above make of them.
     Raises NetworkError where the circuit has no unique solution.
     """
     order = [GROUND, *network.unknowns[: network.n_nodes]]
     hand = joined_nodes(network, {p.name for p in network.parts if p.kind in ("voltage source", "inductance")})
     at = {node: hand[upper] for node, upper in merged.items()}
     nodes = tuple(dict.fromkeys(hand[node] for node in order if hand[node] != GROUND))
-    solved = _solve(network, hand, nodes)
+    solved = _solve(network, hand, nodes, s)
     moved = {node for node, v in zip(order[1:], solved.full_voltage, strict=False) if hand[node] == GROUND and v}
     members: dict[str, list[str]] = {}
     for node, h in at.items():
@@ -170,40 +185,45 @@ def equivalent_circuit(
         inner_names=frozenset(t.inner for device in devices for t in device.terminals if t.inner != t.outer),
         output_nodes=(whole.port.plus, whole.port.minus) if whole.port.kind == "voltage" else (),
         impedance=solved.impedance,
+        whole=solved.whole,
+        s_mid=s,
         voltage=solved.voltage,
         adjoint=solved.adjoint,
         injected=solved.injected,
         response=solved.response,
-        constant=solved.constant,
-        moment=solved.moment,
+        products=solved.products,
+        charge=solved.charge,
         floating=solved.floating,
         row={node: k for k, node in enumerate(nodes)},
-        resistors_at=_adjacency([(r.a, r.b) for r in resistors]),
-        cells_at=_adjacency([(c.control, c.common, c.output) for c in cells]),
+        resistors_at=adjacency([(r.a, r.b) for r in resistors]),
+        cells_at=adjacency([(c.control, c.common, c.output) for c in cells]),
     )
 
 
 class _Solved(Struct, frozen=True):
     impedance: NDArray[np.float64]
+    whole: NDArray[np.complex128]
     full_voltage: NDArray[np.complex128]
     voltage: NDArray[np.complex128]
     adjoint: NDArray[np.complex128]
     injected: NDArray[np.complex128]
     response: complex
-    constant: NDArray[np.float64]
-    moment: NDArray[np.complex128]
+    products: NDArray[np.float64]
+    charge: NDArray[np.complex128]
     floating: frozenset[str]
 
 
-def _solve(network: Network, hand: Mapping[str, str], nodes: tuple[str, ...]) -> _Solved:
-    g = network.conductance.dense(network.size)
+def _solve(network: Network, hand: Mapping[str, str], nodes: tuple[str, ...], s: complex) -> _Solved:
     c = network.capacitance.dense(network.size)
+    g = network.conductance.dense(network.size)
+    g = g + s * c if s else g
     lonely = [k for k in range(network.n_nodes) if not g[k].any() and not g[:, k].any()]
     g[lonely, lonely] = 1.0
     try:
         inverse = np.linalg.inv(g)
     except np.linalg.LinAlgError as error:
         raise NetworkError("the mid-band network has no unique solution") from error
+    faced = inverse - impedance_below(network, s) if s else inverse
     x = inverse @ network.drive
     adjoint = inverse.T @ network.output.astype(complex)
     response = complex(network.output @ x)
@@ -220,21 +240,22 @@ def _solve(network: Network, hand: Mapping[str, str], nodes: tuple[str, ...]) ->
     g[lonely, lonely] = 0.0
     source_current = np.where(np.arange(network.size) < network.n_nodes, network.drive, 0.0)
     injected = groups @ (source_current - g @ np.where(moved, x, 0.0))
-    moment = groups @ (adjoint * (c @ x)) / response if response else np.zeros(len(nodes), dtype=complex)
     return _Solved(
-        impedance=np.asarray(inverse[pick], dtype=float),
+        impedance=np.asarray(faced.real[pick], dtype=float),
+        whole=np.asarray(inverse[pick], dtype=complex),
         full_voltage=x,
         voltage=x[first],
         adjoint=adjoint[first],
         injected=np.asarray(injected, dtype=complex),
         response=response,
-        constant=groups @ np.einsum("ij,ji->i", c, inverse),
-        moment=moment,
+        products=np.asarray(groups @ c @ faced.real[:, first], dtype=float),
+        charge=np.asarray(groups @ (c @ x), dtype=complex),
         floating=frozenset(hand[network.unknowns[k]] for k in lonely),
     )
 
 
-def _adjacency(ends: list[tuple[str, ...]]) -> dict[str, tuple[int, ...]]:
+def adjacency(ends: list[tuple[str, ...]]) -> dict[str, tuple[int, ...]]:
+    """Give for every node which of the elements, whose end nodes are given, are there."""
     at: dict[str, list[int]] = {}
     for k, nodes in enumerate(ends):
         for node in dict.fromkeys(nodes):

@@ -79,6 +79,8 @@ class SignalNode(Struct, frozen=True):
     resistance_hand_ohm, resistance_exact_ohm: of the dominant node.
     time_constant_s (hand), time_constant_exact_s: sums over the lines.
     capacitance_f = time_constant_s / resistance_hand_ohm.
+    image: the same node of the other half in a balanced circuit, analysed as half circuits, empty elsewhere.
+    second: this row is the second half's, equal to that of its image.
     """
 
     name: str
@@ -95,6 +97,8 @@ class SignalNode(Struct, frozen=True):
     capacitance_f: float
     time_constant_s: float
     time_constant_exact_s: float
+    image: str = ""
+    second: bool = False
 
 
 class LowerRow(Struct, frozen=True):

@@ -7,7 +7,7 @@ signal; the second is not seen at the output, and time constants of both halves 
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 
 from msgspec import Struct
 
@@ -25,11 +25,14 @@ class Counted(Struct, frozen=True):
 
 
 def counted(nodes: Sequence[SignalNode]) -> Counted:
-    """Give the rows that count, of n mirror images only the first.
+    """Give the rows that count, of n mirror images only the first; rows of a half circuit's second half never.
 
     Rows are mirror images where time constants, ρ and moment are equal (1e-6); they carry one signal together where
     n·ρ = 1 within 5 % for one group at least. Equal stages in a row have ρ = 1 each and are all counted.
     """
+    if any(node.image for node in nodes):
+        first = [node for node in nodes if node.in_path and not node.second]
+        return Counted(tuple(sorted(first, key=lambda row: -row.time_constant_s)), 2)
     groups: list[list[SignalNode]] = []
     for row in (node for node in nodes if node.in_path):
         for group in groups:
@@ -43,6 +46,17 @@ def counted(nodes: Sequence[SignalNode]) -> Counted:
     )
     kept = [row for group in groups for row in (group[:1] if len(group) == parts else group)]
     return Counted(tuple(sorted(kept, key=lambda row: -row.time_constant_s)), parts)
+
+
+def images(nodes: Sequence[SignalNode]) -> Mapping[str, str]:
+    """Give for every inner line of a half circuit the node where its image is in the upper network, and back."""
+    at = {node.name: node for node in nodes}
+    return {
+        here.at: there.at
+        for node in nodes
+        if node.image
+        for here, there in zip(node.lines, at[node.image].lines, strict=True)
+    }
 
 
 def _mirrored(a: SignalNode, b: SignalNode) -> bool:

@@ -18,7 +18,7 @@ from msgspec import Struct
 from msgspec.structs import replace
 
 from tauledger.circuit import GROUND
-from tauledger.hand.branches import Element, Seen, Walk, outside
+from tauledger.hand.branches import Element, Seen, Walk, bare, outside
 from tauledger.hand.elements import Capacitor, Cell
 from tauledger.hand.equivalent import EquivalentCircuit
 from tauledger.hand.estimate import MillerTerm, WorkingSource
@@ -67,8 +67,10 @@ def hand_gain(circuit: EquivalentCircuit, start: str, end: str) -> HandGain:
 def miller_term(circuit: EquivalentCircuit, capacitor: Capacitor, node: str) -> MillerTerm:
     """Count one capacitance at one of its nodes: farad·(1 − K), or farad·(1 + 1/|A|) behind an inverting stage.
 
-    Keeps the sign: a gain above 1 makes the capacitance negative.
+    Keeps the sign: a gain above 1 makes the capacitance negative. Across a half circuit K is −1.
     """
+    if capacitor.mirrored:
+        return MillerTerm(capacitor.part, capacitor.farad, 2.0, -1 + 0j, "K = −1, the other half moves the other way")
     far = capacitor.b if node == capacitor.a else capacitor.a
     here = hand_gain(circuit, node, far)
     if far == GROUND:
@@ -216,7 +218,9 @@ def _degenerated(cell: Cell, r_c: Seen, r_e: Seen, result: str) -> tuple[float, 
     r_o = cell.r_o * loop if loop > 0.0 else math.inf
     load = parallel(r_c.ohm, r_o)
     written = "R_C" if r_c.ohm < NOT_PRINTED * r_o else "(R_C ‖ R_o)"
-    given = [f"R_C = {r_c.symbol} = {plain(r_c.ohm)}" if r_c.symbol != plain(r_c.ohm) else f"R_C = {plain(r_c.ohm)}"]
+    given = [
+        f"R_C = {bare(r_c.symbol)} = {plain(r_c.ohm)}" if r_c.symbol != plain(r_c.ohm) else f"R_C = {plain(r_c.ohm)}"
+    ]
     if written != "R_C":
         given.append(f"R_o = r_o·(1 + gm·R_E) = {plain(r_o)}")
     numbers = f"{compact(-cell.gm)}·{plain(load)}/(1 + {gm}·{plain(r_e.ohm)})"

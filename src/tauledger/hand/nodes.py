@@ -123,7 +123,8 @@ def passages(circuit: EquivalentCircuit, rows: Iterable[Group]) -> Mapping[str, 
 def crossing(circuit: EquivalentCircuit, node: str) -> float:
     """Give ρ = x·λ/(Z_nn·H) of one node: 1 where all signal crosses it, 0 off the path."""
     k = circuit.row[node]
-    scale = circuit.z(node, node) * circuit.response
+    z = complex(circuit.whole[k, k]) if circuit.s_mid else circuit.z(node, node)
+    scale = z * circuit.response
     return float((circuit.voltage[k] * circuit.adjoint[k] / scale).real) if scale else 0.0
 
 
@@ -175,5 +176,5 @@ def _precedence(word: str) -> int:
 def _output_sign(circuit: EquivalentCircuit, node: str) -> str:
     plus, minus = circuit.output_hand
     if node == plus and node != minus:
-        return "output" if minus == GROUND else "output +"
+        return "output" if circuit.output_nodes[1] == GROUND else "output +"
     return "output −" if node == minus and node != plus else ""

@@ -19,6 +19,7 @@ from tauledger.hand.combine import Coefficients, Complex
 
 # Two real poles are told apart by 1/b1 and b1/b2 from b1²/b2 > 10 on (a ratio of 8); below, the quadratic is solved.
 SEPARATED = 10.0
+THIRD_FAR = 4.0
 
 
 class HandPole(Struct, frozen=True):
@@ -97,10 +98,17 @@ def _formulas(
     if len(poles) == 1 or pair.b2 <= 0 or poles[1].imag:
         return [(1 / pair.b1, dominant, None)]
     if pair.separation > SEPARATED:
-        return [(1 / pair.b1, dominant, None), (pair.b1 / pair.b2, next_one, None)]
-    if pair.separation < 4:
+        found: list[tuple[float, str, float | None]] = [
+            (1 / pair.b1, dominant, None),
+            (pair.b1 / pair.b2, next_one, None),
+        ]
+    elif pair.separation < 4:
         # several real poles close together: two coefficients would make them a pair, and neither formula holds
         return []
-    low, high = np.sort(np.abs(np.roots([pair.b2, pair.b1, 1.0])))
-    quadratic = f"root of 1 + {first}·s + {second}·s²" if first == "b1" else f"root of s² + {first}·s + {second}"
-    return [(float(low), quadratic, None), (float(high), quadratic, None)]
+    else:
+        low, high = np.sort(np.abs(np.roots([pair.b2, pair.b1, 1.0])))
+        quadratic = f"root of 1 + {first}·s + {second}·s²" if first == "b1" else f"root of s² + {first}·s + {second}"
+        found = [(float(low), quadratic, None), (float(high), quadratic, None)]
+    # two coefficients hold two poles: with a third near the second they give their sum, and belong to neither
+    crowded = len(poles) > 2 and max(abs(poles[2] / poles[1]), abs(poles[1] / poles[2])) < THIRD_FAR
+    return found[:1] if crowded else found

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from functools import cmp_to_key
 
 from tauledger.devices.family import Device
@@ -10,6 +11,7 @@ from tauledger.hand.equivalent import EquivalentCircuit, upper_circuit
 from tauledger.hand.estimate import StageRow
 from tauledger.hand.looking_in import looking_in
 from tauledger.hand.miller import hand_gain
+from tauledger.hand.mirror import find_mirror, half_circuit, same_size
 from tauledger.hand.nodes import Group, crossing, groups, node_name
 from tauledger.hand.roles import leaves_at, role_of
 from tauledger.network.bands import Bands
@@ -23,9 +25,12 @@ def stage_rows(bands: Bands, devices: tuple[Device, ...]) -> tuple[StageRow, ...
 
     gain_exact is the voltage ratio to the node before, gain_hand the hand gain driven from that node; for the first
     node both count from the source: V/V where one voltage source drives, ohm where one current source does, None where
-    several do. Raises NetworkError where the mid-band circuit has no unique solution.
+    several do. Of a balanced circuit the half circuit is listed, its first gain counted from its own source.
+    Raises NetworkError where the mid-band circuit has no unique solution.
     """
-    circuit = upper_circuit(bands, devices)
+    whole = upper_circuit(bands, devices)
+    mirror = find_mirror(whole)
+    circuit = whole if mirror is None else half_circuit(whole, mirror)
     crossed = [
         group for group in groups(circuit) if CROSSED_BY_ALL[0] < crossing(circuit, group.nodes[0]) < CROSSED_BY_ALL[1]
     ]
@@ -73,12 +78,17 @@ def _ratio(circuit: EquivalentCircuit, before: str, node: str) -> float:
 def _from_source(bands: Bands, circuit: EquivalentCircuit, node: str) -> tuple[float | None, float | None]:
     """Give hand and exact gain from the source, by the Norton current that it forces into the first node."""
     driven = [amplitude for amplitude in bands.network.amplitudes.values() if amplitude]
-    if len(driven) != 1:
-        return None, None
     k = circuit.row[node]
-    exact = float((circuit.voltage[k] / driven[0]).real)
+    if len(driven) == 1:
+        amplitude = driven[0]
+    else:
+        size = same_size(driven)
+        if size is None or not circuit.injected[k]:
+            return None, None
+        amplitude = math.copysign(size, circuit.injected[k].real)
+    exact = float((circuit.voltage[k] / amplitude).real)
     seen = looking_in(circuit, node, node_name(circuit, node)).ohm
-    return float((circuit.injected[k] * seen / driven[0]).real) or None, exact
+    return float((circuit.injected[k] * seen / amplitude).real) or None, exact
 
 
 def _source_cell(circuit: EquivalentCircuit, group: Group, before: str | None) -> Cell | None:

@@ -155,11 +155,13 @@ def _other_nodes(rows: list[SignalNode]) -> str:
 def _exact_nodes(rows: list[SignalNode]) -> str:
     total = math.fsum(abs(row.time_constant_exact_s) for row in rows)
     worst = max(rows, key=lambda row: abs(row.time_constant_s - row.time_constant_exact_s), default=None)
-    if worst is None or abs(worst.time_constant_s - worst.time_constant_exact_s) <= WORTH_NAMING * total:
+    if worst is None or abs(worst.time_constant_s - worst.time_constant_exact_s) <= SAME * total:
         return "the time constants by hand agree with the exact ones"
+    hand, exact = worst.time_constant_s, worst.time_constant_exact_s
+    digits = 3 if _seconds(hand) != _seconds(exact) else 5
     return (
-        f"exact time constants: {worst.title} {_seconds(worst.time_constant_s)} by hand, "
-        f"{_seconds(worst.time_constant_exact_s)} exact"
+        f"exact time constants: {worst.title} {engineering(hand, 's', digits)} by hand, "
+        f"{engineering(exact, 's', digits)} exact"
     )
 
 
@@ -194,7 +196,7 @@ def _interaction(combined: Combined, thing: str) -> str:
     if combined.hidden:
         return f"the output does not see all poles{_cancelled(combined)}"
     if len(poles) == 1:
-        return f"one pole in all, at {_hz(abs(poles[0]) / (2 * math.pi))}" + _cancelled(combined)
+        return f"one pole in all, at {_hz(abs(poles[0]) / (2 * math.pi))}"
     of_sigma = "" if sigma is None else f", σ = {sigma:.2g}"
     if combined.complex_pair and pair.q is not None and pair.q > 0.5:
         how = f"the {thing}s pull each other: b1 and b2 give a complex pair, Q = {pair.q:.2f}"
@@ -208,7 +210,7 @@ def _interaction(combined: Combined, thing: str) -> str:
         how = f"the {thing}s hardly act on each other"
     else:
         how = f"the {thing}s pull each other: their poles move together"
-    return how + of_sigma + _cancelled(combined)
+    return how + of_sigma
 
 
 def _more_poles(combined: Combined, thing: str, words: str) -> str:
@@ -218,7 +220,9 @@ def _more_poles(combined: Combined, thing: str, words: str) -> str:
     if combined.two_coefficients_overshoot:
         nearest = ", ".join(_frequencies(poles)[:4])
         sigma = "" if combined.sigma is None else f" (σ = {combined.sigma:.2g})"
-        return f"the {thing}s act on each other{sigma} and more than two poles count: {nearest}" + _cancelled(combined)
+        return f"the {thing}s act on each other{sigma} and more than two poles count: {nearest}" + (
+            _cancelled(combined) if combined.hidden else ""
+        )
     further = _frequencies(poles[2:])
     if not further:
         return "there is no third pole"

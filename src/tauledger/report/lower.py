@@ -11,15 +11,17 @@ _ROWS = 6
 
 
 def lower_edge(review: Review, *, verbose: bool = False) -> Section:
-    """Give R, edge, zero, share and what 10 % less gives, for every short capacitor in the path."""
-    short = [part for part in review.parts if part.klass == "short" and part.kind in ("capacitance", "inductance")]
+    """Give R, edge, zero, share and what 10 % less gives, for every capacitor in the path that is short or sets the gain."""
+    short = [
+        part for part in review.parts if part.klass in ("short", "gain") and part.kind in ("capacitance", "inductance")
+    ]
     with_edge = [part for part in short if part.in_path and part.edge_hz is not None]
-    rows = sorted(with_edge, key=lambda part: -(part.edge_hz or 0.0))
+    rows = _in_parallel(sorted(with_edge, key=lambda part: (-(part.edge_hz or 0.0), -part.value)))
     blocks: list[Block] = []
     if rows and review.f_low is not None:
         shown = rows if verbose else rows[:_ROWS]
         head = ("LOWER EDGE f_L", "value", "R", "edge", "zero", "share", "10 % less: f_L")
-        table = tuple(_row(part, review.f_low.exact_hz) for part in shown)
+        table = tuple(_row(group, review.f_low.exact_hz) for group in shown)
         blocks.append(Table("lrrrrrr", head, table))
         if len(rows) > len(shown):
             blocks.append(Prose(f"Not shown: {len(rows) - len(shown)} with lower edges.", lead="  "))
@@ -34,28 +36,40 @@ def lower_edge(review: Review, *, verbose: bool = False) -> Section:
         named = [part_title(part.name, part.owner) for part in review.parts if part.klass == word]
         if named:
             remarks.append(f"{', '.join(named)} {says}")
-    if any(part.resistance_hand_ohm is None for part in rows):
+    remarks += [f"10 % less of {group[0].name} alone" for group in rows if len(group) > 1]
+    if any(group[0].resistance_hand_ohm is None for group in rows):
         remarks.append(f"{SOLVED} exact: no hand rule fits")
     if any(remarks):
         blocks.append(Prose("; ".join(filter(None, remarks)), lead="  "))
     return Section(tuple(blocks), major=True)
 
 
-def _row(part: PartRow, f_low: float | None) -> Row:
+def _in_parallel(parts: list[PartRow]) -> list[list[PartRow]]:
+    """Put capacitors with the same edge and zero between the same nodes together: they are one; order kept."""
+    groups: dict[tuple[frozenset[str], float | None, float | None], list[PartRow]] = {}
+    for part in parts:
+        groups.setdefault((frozenset(part.nodes), part.edge_hz, part.zero_hz), []).append(part)
+    return list(groups.values())
+
+
+def _row(group: list[PartRow], f_low: float | None) -> Row:
+    part = group[0]
     less = part.ten_percent_less.f_low_hz
     change = f" ({move(less / f_low - 1.0)})" if less is not None and f_low else ""
+    shares = [one.share.f_low for one in group if one.share.f_low is not None]
+    names = " ‖ ".join(part_title(one.name, one.owner) for one in group)
     ends = " to ".join("ground" if node == "0" else node for node in part.nodes)
     hand = part.resistance_hand_ohm
     resistance = number(part.resistance_exact_ohm, "Ω") + SOLVED if hand is None else number(hand, "Ω")
     zero = "at DC" if part.zero_hz == 0.0 else number(part.zero_hz, "Hz", 3)
     return Row(
         (
-            f"{part_title(part.name, part.owner)}, {ends}",
-            nominal(part.value, part_unit(part.kind)),
+            f"{names}, {ends}",
+            nominal(sum(one.value for one in group), part_unit(part.kind)),
             resistance,
             number(part.edge_hz, "Hz"),
             zero,
-            fraction(part.share.f_low),
+            fraction(sum(shares) if shares else None),
             number(less, "Hz") + change,
         )
     )

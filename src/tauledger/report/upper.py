@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping
 
 from tauledger.record import CapacitanceTerm, NodeRow, PartRow, Review, UpperBudget, Working
@@ -9,7 +10,6 @@ from tauledger.report.layout import Block, Prose, Row, Section, Table
 from tauledger.report.wording import (
     NO_NUMBER,
     SOLVED,
-    fraction,
     move,
     nominal,
     number,
@@ -23,6 +23,7 @@ _PICOFARAD = 1e-12
 _MATTERS = 0.01
 _WORTH_A_ROW = 0.02
 _NODES, _TERMS, _SHARES = 6, 4, 5
+_EQUAL = 1e-6
 
 
 def upper_budget(review: Review, *, verbose: bool = False) -> Section:
@@ -30,8 +31,9 @@ def upper_budget(review: Review, *, verbose: bool = False) -> Section:
     if not review.nodes:
         return Section(())
     titles = part_titles(review.parts)
-    shown = [node for node in review.nodes if verbose or _node_matters(node, review)]
-    hidden = len(review.nodes) - len(shown)
+    first = [node for node in review.nodes if not node.second]
+    shown = [node for node in first if (verbose and _carries(node)) or _node_matters(node, review)]
+    hidden = len(first) - len(shown)
     if not verbose:
         hidden += max(len(shown) - _NODES, 0)
         shown = sorted(shown, key=lambda node: -abs(node.time_constant_s or 0.0))[:_NODES]
@@ -41,13 +43,13 @@ def upper_budget(review: Review, *, verbose: bool = False) -> Section:
         rows.append(_node_row(node, f_high))
         if node.working:
             rows.extend(_term_rows(node, node.working, titles, least=0.0 if verbose else _WORTH_A_ROW * _whole(review)))
-    title = f"UPPER EDGE f_H, {len(shown)} of {len(review.nodes)} nodes" if hidden else "UPPER EDGE f_H, by node"
+    title = f"UPPER EDGE f_H, {len(shown)} of {len(first)} nodes" if hidden else "UPPER EDGE f_H, by node"
     head = (title, "R", "C", "R·C hand", "exact", "+1 pF")
     blocks: list[Block] = [Table("lrrrrr", head, tuple(rows))]
     if any(node.working and node.working.source == "solved" for node in shown):
         blocks.append(Prose("solved exactly: no hand rule fits this node", lead=f"  {SOLVED} "))
     if review.budget.upper:
-        blocks.append(Prose(_sums(review.budget.upper), lead="  "))
+        blocks.append(Prose(_sums(review.budget.upper, halves=any(n.image for n in first)), lead="  "))
     if verbose:
         blocks.extend(_workings(shown, review.parts))
     return Section(tuple(blocks), major=True)
@@ -58,37 +60,40 @@ def upper_shares(review: Review, *, verbose: bool = False) -> Section:
     if review.f_high is None:
         return Section(())
     with_share = [(part, part.share.f_high) for part in review.parts if part.share.f_high is not None]
-    ordered = sorted(with_share, key=lambda entry: -abs(entry[1]))
-    shown = [e for e in ordered if verbose or abs(e[1]) >= _WORTH_A_ROW][: None if verbose else _SHARES]
+    ordered = _alike(sorted(with_share, key=lambda entry: -abs(entry[1])))
+    shown = [e for e in ordered if verbose or abs(e[0][1]) >= _WORTH_A_ROW][: None if verbose else _SHARES]
     if not shown:
         return Section(())
     titles = part_titles(review.parts)
-    rows = [_share_row(part, value, titles, review.f_high.exact_hz) for part, value in shown]
-    rest = ordered[len(shown) :]
+    rows = [_share_row(alike, titles, review.f_high.exact_hz) for alike in shown]
+    rest = [entry for alike in ordered[len(shown) :] for entry in alike]
     if rest:
-        rows.append(
-            Row(
-                (
-                    f"{_count(len(rest), 'other')} together",
-                    "",
-                    share(sum(value for _, value in rest)),
-                    "",
-                )
-            )
-        )
+        told = f"{_count(len(rest), 'other')} together"
+        rows.append(Row((told, "", share(sum(value for _, value in rest)), "")))
     head = ("WHOSE CAPACITANCE SETS f_H", "value", "share", "10 % less, recomputed: f_H")
     return Section((Table("lrrr", head, tuple(rows)),))
 
 
+def _carries(node: NodeRow) -> bool:
+    """Whether there is any capacitance at a node, so that there is something to work out."""
+    return node.working is None or bool(node.working.capacitances)
+
+
 def _node_matters(node: NodeRow, review: Review) -> bool:
-    if not node.in_path:
+    if not node.in_path or node.second:
         return False
     return abs(node.share.f_high or 0.0) >= _MATTERS or abs(node.time_constant_s or 0.0) >= _MATTERS * _whole(review)
 
 
 def _whole(review: Review) -> float:
     """Give the sum of the time constants that count, in s."""
-    return sum(abs(row.time_constant_s or 0.0) for row in review.nodes if row.in_path)
+    return sum(abs(row.time_constant_s or 0.0) for row in review.nodes if row.in_path and not row.second)
+
+
+def node_title(node: NodeRow) -> str:
+    """Name a row: "base of Q1 (b)"; in a balanced circuit the node of either half; and whether it is off the path."""
+    title = f"each of {node.name}, {node.image} (half circuit)" if node.image else node.title
+    return title if node.in_path else f"{title}, off path"
 
 
 def _node_row(node: NodeRow, f_high: float | None) -> Row:
@@ -96,7 +101,7 @@ def _node_row(node: NodeRow, f_high: float | None) -> Row:
     cost = node.per_farad.f_high
     return Row(
         (
-            node.title if node.in_path else f"{node.title}, off path",
+            node_title(node),
             number(node.resistance_hand_ohm, "Ω") + solved,
             number(node.capacitance_f, "F"),
             number(node.time_constant_s, "s"),
@@ -142,10 +147,11 @@ def _times(term: CapacitanceTerm) -> str:
     return "" if abs(term.factor - 1.0) < 5e-4 else f" {number(term.farad, 'F', 3)} × {term.factor:.4g}"
 
 
-def _sums(budget: UpperBudget) -> str:
+def _sums(budget: UpperBudget, *, halves: bool) -> str:
     path = "" if budget.path_sum_s is None else f"Σ R·C {number(budget.path_sum_s, 's')}; "
     weighted = _pair("weighted", budget.weighted_sum_s, "group delay", budget.group_delay_s)
-    return f"{path}{weighted}; {_pair('all parts', budget.sum_s, '-Σ 1/p', budget.inverse_pole_sum_s)}"
+    whose = "both halves" if halves else "all parts"
+    return f"{path}{weighted}; {_pair(whose, budget.sum_s, '-Σ 1/p', budget.inverse_pole_sum_s)}"
 
 
 def _pair(name: str, value: float, check: str, other: float) -> str:
@@ -155,11 +161,41 @@ def _pair(name: str, value: float, check: str, other: float) -> str:
     return f"{name} {number(value, 's')}, {check} {number(other, 's')}"
 
 
-def _share_row(part: PartRow, value: float, titles: Mapping[str, str], f_high: float | None) -> Row:
+def _alike(ordered: list[tuple[PartRow, float]]) -> list[list[tuple[PartRow, float]]]:
+    """Put parts together that are the same in all that a row says, as those of two halves are; order kept."""
+    groups: list[list[tuple[PartRow, float]]] = []
+    for part, value in ordered:
+        mine = (part.value, value, part.ten_percent_less.f_high_hz or 0.0)
+        for group in groups:
+            first, its = group[0]
+            theirs = (first.value, its, first.ten_percent_less.f_high_hz or 0.0)
+            same = first.kind == part.kind and first.name.removeprefix(first.owner) == part.name.removeprefix(
+                part.owner
+            )
+            if same and all(math.isclose(a, b, rel_tol=_EQUAL) for a, b in zip(mine, theirs, strict=True)):
+                group.append((part, value))
+                break
+        else:
+            groups.append([(part, value)])
+    return groups
+
+
+def _share_row(alike: list[tuple[PartRow, float]], titles: Mapping[str, str], f_high: float | None) -> Row:
+    part, value = alike[0]
     less = part.ten_percent_less.f_high_hz
     change = f" ({move(less / f_high - 1.0)})" if less is not None and f_high else ""
     amount = nominal(part.value, part_unit(part.kind)) if part.owner == part.name else number(part.value, "F", 3)
-    return Row((titles[part.name], amount, share(value), number(less, "Hz") + change))
+    return Row((_each(alike, titles), amount, share(value), number(less, "Hz") + change))
+
+
+def _each(alike: list[tuple[PartRow, float]], titles: Mapping[str, str]) -> str:
+    """Name one part, or "each of CLP, CLN", "C_μ of each of QP, QN"."""
+    names = [titles[part.name] for part, _ in alike]
+    if len(names) == 1:
+        return names[0]
+    label, of, _ = names[0].partition(" of ")
+    owners = ", ".join(name.removeprefix(f"{label}{of}") for name in names) if of else ", ".join(names)
+    return f"{label} of each of {owners}" if of else f"each of {owners}"
 
 
 def _workings(nodes: list[NodeRow], parts: tuple[PartRow, ...]) -> list[Block]:
@@ -169,8 +205,8 @@ def _workings(nodes: list[NodeRow], parts: tuple[PartRow, ...]) -> list[Block]:
             continue
         loop = "" if node.working.loop_gain is None else f", loop gain T = {node.working.loop_gain:.4g}"
         exact = number(node.resistance_exact_ohm, "Ω")
-        facts = f"{node.title}: {node.working.rule} ({node.working.source}{loop}), exact {exact}"
-        blocks.append(Prose(f"{facts}, share of f_H {fraction(node.share.f_high)}", lead="  "))
+        facts = f"{node_title(node)}: {node.working.rule} ({node.working.source}{loop}), exact {exact}"
+        blocks.append(Prose(f"{facts}, share of f_H {share(node.share.f_high)}", lead="  "))
         lines = retitled(node.working.text, parts).split("; ")
         blocks.extend(Prose(line, lead="    ", hang=6) for line in lines)
     return blocks
