@@ -2,11 +2,13 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Sequence
 from functools import cache
 from types import SimpleNamespace
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING, Any, NamedTuple
 
+from tauledger.netlist.behaviour import parse_behaviour
 from tauledger.netlist.diagnostics import Site
 from tauledger.netlist.expressions import parse_formula
 from tauledger.netlist.items import Group, Item, Quoted, Setting, Word
@@ -14,7 +16,7 @@ from tauledger.netlist.items import Group, Item, Quoted, Setting, Word
 if TYPE_CHECKING:
     from lark import Lark, Token
 
-    from tauledger.netlist.formulas import Formula
+    from tauledger.netlist.formulas import Behaviour, Formula
 
 MOST_NESTED = 50
 
@@ -33,14 +35,97 @@ _UNCLOSED = {
 }
 
 
-def parse_card(site: Site) -> tuple[Item, ...]:
+# What makes a formula a behavioural one: it can only be worked out during the run.
+_OF_THE_RUN = re.compile(r"(?<![\w.])(?:[vi]\s*\(|(?:temper|hertz|time)\b)", re.IGNORECASE)
+# The keywords behind which a behavioural expression stands, by letter; the second set only where it is one.
+_BEHAVIOURAL = {"B": "v|i", "E": "vol|value", "G": "cur|value", "C": "q"}
+_PERHAPS = {"R": "r", "C": "c", "L": "l"}
+_PIECE = re.compile(r"""'[^']*'|"[^"]*"|\{[^{}]*\}|[()]|(?<![\w.])([A-Za-z]+\w*)\s*(?:=(?!=)\s*|(?=[{'"]))""")
+_BEHIND = re.compile(r"""'[^']*'|"[^"]*"|\{[^{}]*\}|[()]|\s(?:tc1|tc2|m|temp|dtemp|ic)\s*=(?!=)""", re.IGNORECASE)
+
+
+class _Region(NamedTuple):
+    """A behavioural expression on a card: its keyword, where that begins, where the expression begins and ends."""
+
+    keyword: str
+    key: int
+    start: int
+    end: int
+
+
+def parse_element(site: Site) -> tuple[Item, ...]:
+    """Give the items of an element card; a behavioural expression becomes the value of its keyword, bare or not.
+
+    `TABLE {x} = ..` of a controlled source comes out as the setting table={x}, its pairs as they stand.
+    Raises NetlistError at the character where the card stops making sense.
+    """
+    text = site.card.text
+    region = _region(text, text[0].upper())
+    if region is None:
+        return parse_card(site)
+    keyword, key, start, end = region
+    items = parse_card(site, text[:key] + " " * (end - key) + text[end:])
+    given = text[start:end].rstrip(" \t=" if keyword.lower() == "table" else None)
+    quoted = len(given) >= 2 and given[0] in "'\"" and given[-1] == given[0]
+    behaviour = parse_behaviour(site, given[1:-1] if quoted else given, start, start + quoted)
+    before = sum(item.at < key for item in items)
+    return (*items[:before], Setting(Word(keyword, key), behaviour), *items[before:])
+
+
+def _region(text: str, letter: str) -> _Region | None:
+    sure, perhaps = _BEHAVIOURAL.get(letter, "").split("|"), _PERHAPS.get(letter, "")
+    depth = 0
+    for piece in _PIECE.finditer(text):
+        keyword = piece.group(1)
+        if keyword is None:
+            depth += {"(": 1, ")": -1}.get(piece.group(), 0)
+            continue
+        word = keyword.lower()
+        if depth or not piece.start():
+            continue
+        if word == "table" and letter in "EG":
+            start, end = piece.end(), _end(text, piece.end(), alone=True)
+            rest = text[end:]
+            skip = len(rest) - len(rest.lstrip())
+            # The equals sign between the variable and the pairs says nothing.
+            return _Region(keyword, piece.start(), start, end + skip + rest[skip : skip + 1].count("="))
+        if word in sure and (letter != "B" or "=" in piece.group()):
+            return _Region(keyword, piece.start(), piece.end(), _end(text, piece.end()))
+        if word == perhaps:
+            end = _end(text, piece.end())
+            if _OF_THE_RUN.search(text, piece.end(), end):
+                return _Region(keyword, piece.start(), piece.end(), end)
+    return None
+
+
+def _end(text: str, start: int, *, alone: bool = False) -> int:
+    """Give the end of an expression: of its quotes, else where the next keyword of the card begins.
+
+    alone: what stands in one pair of braces or parentheses.
+    """
+    if text[start : start + 1] in ("'", '"') or (alone and text[start : start + 1] == "{"):
+        closing = text.find({"{": "}"}.get(text[start], text[start]), start + 1)
+        return len(text) if closing < 0 else closing + 1
+    depth = 0
+    for piece in _BEHIND.finditer(text, start):
+        found = piece.group()
+        depth += {"(": 1, ")": -1}.get(found, 0)
+        if alone and found == ")" and depth == 0:
+            return piece.end()
+        if depth == 0 and found[0].isspace():
+            return piece.start()
+    return len(text)
+
+
+def parse_card(site: Site, text: str | None = None) -> tuple[Item, ...]:
     """Give the items of a card, its first word included; formulas are parsed too.
 
+    text: to be read instead of the card's, character for character at the same place.
     Raises NetlistError at the character where the card stops making sense.
     """
     from lark import Token, UnexpectedCharacters, UnexpectedToken
 
-    text = site.card.text
+    text = site.card.text if text is None else text
     deep = _depth(text)
     if deep is not None:
         raise site.fault(deep, f"parentheses are nested more than {MOST_NESTED} deep")
@@ -64,13 +149,16 @@ def parse_card(site: Site) -> tuple[Item, ...]:
         name, given = raw
         return Setting(Word(str(name), name.start_pos), value(given))
 
-    def value(token: Token) -> Word | Quoted | Formula:
+    def value(token: Token) -> Word | Quoted | Formula | Behaviour:
         at = token.start_pos or 0
         if token.type == "WORD":
             return Word(str(token), at)
         if token.type == "TEXT":
             return Quoted(str(token)[1:-1], at)
-        return parse_formula(site, str(token)[1:-1], at, at + 1)
+        given = str(token)[1:-1]
+        if _OF_THE_RUN.search(given) and not text.startswith("."):
+            return parse_behaviour(site, given, at, at + 1)
+        return parse_formula(site, given, at, at + 1)
 
     return tuple(item(raw) for raw in found)
 

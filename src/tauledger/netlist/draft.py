@@ -19,7 +19,7 @@ from tauledger.circuit import (
     ReadingNote,
     fold,
 )
-from tauledger.errors import InputError
+from tauledger.errors import Diagnostic, InputError
 from tauledger.netlist.diagnostics import nearest, visible
 
 MOST_ELEMENTS = 250_000
@@ -43,7 +43,8 @@ class Draft(Struct):
     """What elaboration has gathered so far.
 
     numbers: node number by folded flat name. taken: where each flat element name was first used. changed: values of a
-    Change by folded name that have not been used yet; used ones are taken out.
+    Change by folded name that have not been used yet; used ones are taken out. refusals: what can be read but not
+    reviewed. contexts: per instance the lines that say where it stands.
     """
 
     nodes: list[str] = field(default_factory=lambda: [GROUND])
@@ -56,6 +57,8 @@ class Draft(Struct):
     changed_elements: dict[str, tuple[str, float]] = field(default_factory=dict)
     changed_models: dict[tuple[str, str], tuple[str, str, float]] = field(default_factory=dict)
     fixed: set[str] = field(default_factory=set)
+    refusals: list[Diagnostic] = field(default_factory=list)
+    contexts: list[tuple[str, ...]] = field(default_factory=lambda: [()])
 
 
 def check_finite(name: str, value: float) -> None:
@@ -90,7 +93,7 @@ def check_all_used(draft: Draft) -> None:
     for name, _value in draft.changed_elements.values():
         if fold(name) in draft.fixed:
             raise InputError(f"{visible(name)} has no single value that could be set", "set a parameter of its model")
-        known = [row.name for row in draft.rows] + [e.name for e in draft.elements if e.letter in "VIG"]
+        known = [row.name for row in draft.rows] + [e.name for e in draft.elements if e.letter in "VIEFGH"]
         raise InputError(
             f"no element is called {visible(name)!r}", nearest(name, known, otherwise=f"there are {_listed(known)}")
         )

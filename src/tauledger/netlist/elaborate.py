@@ -6,8 +6,9 @@ Pure: the same netlist under another Change gives another circuit, and nothing i
 from __future__ import annotations
 
 import math
+from typing import Literal
 
-from tauledger.circuit import ADDED, NO_CHANGE, Change, Circuit, Port, fold
+from tauledger.circuit import ADDED, GROUND, NO_CHANGE, Change, Circuit, Port, fold
 from tauledger.errors import Diagnostic, InputError, NetlistError
 from tauledger.netlist.diagnostics import Site, gather, nearest, visible
 from tauledger.netlist.draft import Draft, Row, check_all_used, check_finite, draft_for, finished
@@ -16,22 +17,32 @@ from tauledger.netlist.hints import hints
 from tauledger.netlist.items import Setting, Value, flattened
 from tauledger.netlist.netlist import Netlist
 from tauledger.netlist.options import option_settings, plain_value
-from tauledger.netlist.ports import choose_drive, choose_output, parse_port
+from tauledger.netlist.ports import choose_drive, choose_output, driven_as_written, parse_port
+from tauledger.netlist.references import check_references
 from tauledger.netlist.scopes import Binding, Scope, define, work_out_all
 
 ABSOLUTE_ZERO_C = -273.15
 ROOM_C = 27.0
 
+Purpose = Literal["review", "reading"]
+
 
 def elaborate(
-    netlist: Netlist, change: Change = NO_CHANGE, *, drive: str | None = None, output: str | None = None
+    netlist: Netlist,
+    change: Change = NO_CHANGE,
+    *,
+    drive: str | None = None,
+    output: str | None = None,
+    purpose: Purpose = "review",
 ) -> Circuit:
     """Give the flat circuit of a netlist under a change.
 
     drive: name of the one source to drive with 1, all others with 0; None drives every source with an AC value.
     output: "out", "v(out)", "v(a,b)" or "i(vload)"; None takes the netlist's hints, else the only node called out, vout
-    or output. Raises NetlistError (up to 20 diagnostics) where cards have no usable meaning, InputError where drive,
-    output or change name what is not there.
+    or output. purpose "reading": elements that no device family rebuilds are kept, and drive and output may be missing
+    (then the output is ground).
+    Raises NetlistError (up to 20 diagnostics) where cards have no usable meaning, InputError where drive, output or
+    change name what is not there.
     """
     draft = draft_for(change)
     scope = Scope()
@@ -51,15 +62,22 @@ def elaborate(
         models={},
     )
     flatten(netlist, draft, top, faults)
+    faults.extend(draft.refusals if purpose == "review" else [])
     if faults:
         raise gather(faults, netlist.files)
     _check_ground(netlist, draft)
     check_all_used(draft)
-    driven = choose_drive(draft.elements, drive)
+    check_references(netlist, draft, faults)
+    if faults:
+        raise gather(faults, netlist.files)
     currents = _currents(draft)
-    forced = [currents[source.source] for source in driven.drive if source.kind == "voltage"]
-    forced += [Port(port.minus, port.plus) for port in forced]
-    port = choose_output(output, hints(netlist).outputs, draft.nodes, currents, forced)
+    if purpose == "reading" and drive is None and output is None:
+        driven, port = driven_as_written(draft.elements), Port(GROUND)
+    else:
+        driven = choose_drive(draft.elements, drive)
+        forced = [currents[source.source] for source in driven.drive if source.kind == "voltage"]
+        forced += [Port(port.minus, port.plus) for port in forced]
+        port = choose_output(output, hints(netlist).outputs, draft.nodes, currents, forced)
     _add_loads(draft, change, currents)
     return finished(
         draft,

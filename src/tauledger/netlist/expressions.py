@@ -16,7 +16,7 @@ from typing import TYPE_CHECKING, Any
 
 from tauledger.errors import NetlistError
 from tauledger.netlist.diagnostics import Site, nearest
-from tauledger.netlist.formulas import Call, Formula, Name, Number, Operation, Tree
+from tauledger.netlist.formulas import Call, Formula, Name, Number, Operation, Probe, Tree
 from tauledger.netlist.numbers import read_formula_number
 
 if TYPE_CHECKING:
@@ -103,9 +103,7 @@ def parse_formula(site: Site, text: str, at: int, inner: int) -> Formula:
 
     if not text.strip():
         raise site.fault(at, "the formula is empty", "write a number or a formula", wide=len(text) + inner - at + 1)
-    if len(text) > MOST_CHARACTERS or sum(map(text.count, "+-*/%\\^<>=&|!?(,")) > MOST_OPERATORS:
-        limits = f"at most {MOST_CHARACTERS} characters and {MOST_OPERATORS} operators and parentheses"
-        raise site.fault(at, "the formula is too long", f"split it into parameters: {limits}")
+    check_length(site, text, at)
     try:
         parsed: Any = _parser().parse(text)
     except UnexpectedCharacters as error:
@@ -123,14 +121,22 @@ def parse_formula(site: Site, text: str, at: int, inner: int) -> Formula:
         where = error.pos_in_stream or 0
         found = str(error.token)
         raise site.fault(
-            inner + where, f"{found!r} cannot stand here in a formula", _advice(text, where, found)
+            inner + where, f"{found!r} cannot stand here in a formula", advice(text, where, found)
         ) from error
     tree: Tree = parsed
     _check_signs(site, tree, text, inner)
     return Formula(text, at, inner, tree)
 
 
-def _advice(text: str, where: int, found: str) -> str:
+def check_length(site: Site, text: str, at: int) -> None:
+    """Raise NetlistError for a formula beyond the limits, which hold for both dialects."""
+    if len(text) > MOST_CHARACTERS or sum(map(text.count, "+-*/%\\^<>=&|!?(,")) > MOST_OPERATORS:
+        limits = f"at most {MOST_CHARACTERS} characters and {MOST_OPERATORS} operators and parentheses"
+        raise site.fault(at, "the formula is too long", f"split it into parameters: {limits}")
+
+
+def advice(text: str, where: int, found: str) -> str:
+    """Say what would help where a formula stops making sense at `found`; empty where that is not clear."""
     if found[0] in "+-" or text[:where].rstrip()[-1:] in ("+", "-"):
         return "behind an operator only a minus before a number stands: use parentheses"
     if found[0].isdigit() and where and text[where - 1].isalpha():
@@ -140,7 +146,7 @@ def _advice(text: str, where: int, found: str) -> str:
 
 def _check_signs(site: Site, tree: Tree, text: str, inner: int) -> None:
     """Refuse a sign behind a comparison, `?`, `:`, && or || before anything but a number, as ngspice does."""
-    if isinstance(tree, Number | Name):
+    if isinstance(tree, Number | Name | Probe):
         return
     if isinstance(tree, Call):
         for part in tree.arguments:

@@ -7,28 +7,36 @@ from collections.abc import Iterator
 from msgspec import Struct
 from msgspec.structs import replace
 
+from tauledger import circuit
 from tauledger.circuit import GROUND, Element, Instance, ReadingNote, fold
-from tauledger.devices.family import Family
+from tauledger.devices.catalogue import choose, families_of
+from tauledger.devices.family import Refusal, never_refused
 from tauledger.errors import Diagnostic, InputError, NetlistError
+from tauledger.netlist.behaviour import formula_of
+from tauledger.netlist.controlled import behavioural, controlled, coupling, line
 from tauledger.netlist.diagnostics import MOST_DIAGNOSTICS, Site, nearest, visible
 from tauledger.netlist.draft import MOST_ELEMENTS, MOST_INSTANCES, MOST_NESTED_INSTANCES, Draft, Row, node_number
-from tauledger.netlist.elements import (
-    Fields,
-    InstanceCard,
-    device,
-    fields,
-    impossible,
-    instance,
-    multiplicity,
-    passive,
-    transconductance,
+from tauledger.netlist.elements import ElementCard, Fields, InstanceCard, device, fields, instance, multiplicity
+from tauledger.netlist.items import Item, Setting, Word
+from tauledger.netlist.letters import (
+    CONTROLLED,
+    MODELLED,
+    NOT_READ,
+    PASSIVE_MODELS,
+    PASSIVES,
+    PLURAL,
+    READ,
+    SOURCES,
 )
-from tauledger.netlist.items import Setting, Word
-from tauledger.netlist.letters import DEVICES, NOT_READ, PASSIVES, READ, SOURCES
 from tauledger.netlist.models import ModelCard, model_name, read_model
 from tauledger.netlist.netlist import Definition, Netlist
-from tauledger.netlist.scopes import Binding, Scope, define, work_out_all
+from tauledger.netlist.passive import impossible, passive
+from tauledger.netlist.scopes import Binding, Scope, define, find, known_names, work_out_all
 from tauledger.netlist.sources import source
+
+# Letters whose elements ngspice does not multiply by the m of the instances around them.
+WITHOUT_M = frozenset("VEHBKTSWOUYP")
+READ_ONLY = "`tauledger netlist` shows what was read"
 
 
 class Surroundings(Struct, frozen=True):
@@ -74,38 +82,173 @@ def _element(
     items = netlist.items[number]
     card = fields(site, items)
     name = _take_name(draft, around, card, site)
-    scope = around.scope
     if letter == "X":
         _instance(netlist, draft, around, faults, number, site, card, name)
-    elif letter in PASSIVES:
-        part = passive(site, card, letter, scope)
-        m = _product(around, part.m, name, site)
-        value = _changed(draft, name, part.value)
-        if problem := impossible(letter, value):
-            raise InputError(f"{name}: {problem}")
-        scaled = value * m if letter == "C" else value / m
-        a, b = (_node(netlist, draft, around, node) for node in part.nodes)
-        draft.rows.append(Row(letter, name, a, b, scaled, number, around.path))
-    elif letter in SOURCES:
-        given = source(site, items, letter, scope)
-        m = _product(around, given.m, name, site) if letter == "I" else 1.0
-        values = [("dc", m * _changed(draft, name, given.dc))]
-        if given.ac_magnitude is not None:
-            values += [("acmag", m * given.ac_magnitude), ("acphase", given.ac_phase)]
-        _add(netlist, draft, around, number, letter, name, given.nodes, "", tuple(values))
-    elif letter == "G":
-        controlled = transconductance(site, card, scope)
-        m = _product(around, controlled.m, name, site)
-        gain = (("gain", m * _changed(draft, name, controlled.gain)),)
-        _add(netlist, draft, around, number, letter, name, controlled.nodes, "", gain)
+        return
+    seen: dict[str, tuple[Surroundings, int]] = {}
+    if letter in SOURCES:
+        part = _source(site, items, letter, around.scope)
+    elif letter in CONTROLLED:
+        part = controlled(site, card, letter, around.scope)
+    elif letter == "B":
+        part = behavioural(site, card, around.scope)
+    elif letter == "K":
+        part = coupling(site, card, around.scope)
+    elif letter == "T":
+        part = line(site, card, around.scope)
     else:
-        _device(netlist, draft, around, number, site, card, name, DEVICES[letter])
+        seen = dict(reversed(list(_visible_models(netlist, around))))
+        part = _modelled(site, card, letter, frozenset(seen), around.scope)
+    part = _multiplied(around, part, letter, name, site)
+    if letter in PASSIVES and part.model is None and [key for key, _ in part.parameters] == ["value"]:
+        _plain(netlist, draft, around, part, letter, name, number)
+        return
+    model = None if part.model is None else _model(netlist, draft, seen[fold(part.model.text)], part.model, letter)
+    element = Element(
+        letter=letter,
+        name=name,
+        nodes=tuple(_node(netlist, draft, around, node) for node in part.nodes),
+        model=model.model.name if model else "",
+        parameters=_own_value(draft, name, part, letter),
+        card=number,
+        path=around.path,
+        references=tuple(_reference(around, word) for word in part.references),
+        polynomial=part.polynomial,
+        formula=_formula(netlist, draft, around, part, site),
+        quantity=part.quantity,
+    )
+    draft.elements.append(element)
+    family = choose(element, model.model if model else None)
+    if isinstance(family, Refusal):
+        draft.refusals.extend(_refused(netlist, site, card, element, model, family).diagnostics)
+    elif family.model_types and len(element.nodes) > len(family.terminals):
+        message = f"a {family.words} has at most {len(family.terminals)} nodes"
+        hint = f"write {card.name.text} {' '.join(family.terminals)} model"
+        draft.refusals.extend(site.fault(part.nodes[len(family.terminals)], message, hint).diagnostics)
+    elif (element.formula is not None or element.polynomial) and family.refuse is never_refused:
+        message = f"a {family.words} given by a formula is not supported by this version"
+        draft.refusals.extend(site.fault(card.name, message, READ_ONLY).diagnostics)
+
+
+def _source(site: Site, items: tuple[Item, ...], letter: str, scope: Scope) -> ElementCard:
+    given = source(site, items, letter, scope)
+    values = [("dc", given.dc)]
+    if given.ac_magnitude is not None:
+        values += [("acmag", given.ac_magnitude), ("acphase", given.ac_phase)]
+    return ElementCard(given.nodes, tuple(values), given.m)
+
+
+def _modelled(site: Site, card: Fields, letter: str, models: frozenset[str], scope: Scope) -> ElementCard:
+    """Read a card whose last place is a model: a passive may have one, a device must."""
+    if letter in PASSIVES:
+        return passive(site, card, letter, models, scope)
+    control = card.places[2] if letter == "W" and len(card.places) > 2 else None
+    if control is not None:
+        if not isinstance(control, Word):
+            raise site.fault(control, "the name of a voltage source is expected here", "write W1 n+ n- source model")
+        card = replace(card, places=card.places[:2] + card.places[3:])
+    known = frozenset().union(*(family.instance_parameters for family in families_of(letter)))
+    part = device(site, card, MODELLED[letter], models, known, scope)
+    return part if control is None else replace(part, references=(control,))
+
+
+def _multiplied(around: Surroundings, part: ElementCard, letter: str, name: str, site: Site) -> ElementCard:
+    """Work in m: of the card and of the instances around, where ngspice counts it for this letter."""
+    if letter in WITHOUT_M:
+        if around.m != 1.0 and letter == "B" and part.quantity == "i":
+            says = f"{name} does not count the m = {around.m:g} of the instances around it: ngspice has none for B"
+            around.scope.notes.append(ReadingNote(site.where, says))
+        return part if part.m == 1.0 else replace(part, parameters=(*part.parameters, ("m", part.m)))
+    m = _product(around, part.m, name, site)
+    if letter == "I":
+        return replace(
+            part,
+            parameters=tuple((key, value if key == "acphase" else m * value) for key, value in part.parameters),
+            m=1.0,
+        )
+    if m != 1.0 and (letter in PASSIVES and [key for key, _ in part.parameters] == ["value"] and part.model is None):
+        return replace(part, m=m)
+    if letter in "FG" and part.behaviour is None and not part.polynomial:
+        return replace(part, parameters=tuple((key, m * value) for key, value in part.parameters))
+    return part if m == 1.0 else replace(part, parameters=(*part.parameters, ("m", m)))
+
+
+def _plain(
+    netlist: Netlist, draft: Draft, around: Surroundings, part: ElementCard, letter: str, name: str, number: int
+) -> None:
+    value = _changed(draft, name, part.parameters[0][1])
+    if problem := impossible(letter, value):
+        raise InputError(f"{name}: {problem}")
+    a, b = (_node(netlist, draft, around, node) for node in part.nodes)
+    scaled = value * part.m if letter == "C" else value / part.m
+    draft.rows.append(Row(letter, name, a, b, scaled, number, around.path))
+
+
+def _own_value(draft: Draft, name: str, part: ElementCard, letter: str) -> tuple[tuple[str, float], ...]:
+    """Give the parameters with a changed value in its place: of R C L the value, of V I dc, of E F G H the gain."""
+    key = fold(name)
+    if key not in draft.changed_elements:
+        return part.parameters
+    own = "dc" if letter in SOURCES else "gain" if letter in CONTROLLED else "value"
+    if own not in dict(part.parameters):
+        draft.fixed.add(key)
+        return part.parameters
+    m = part.m if letter in "FG" else 1.0
+    return tuple((word, m * _changed(draft, name, value) if word == own else value) for word, value in part.parameters)
+
+
+def _reference(around: Surroundings, word: Word) -> str:
+    """Give the flat name of another element: one beside it; from the netlist itself also v.x1.v1, as ngspice has it."""
+    text = word.text
+    if not around.prefix and text[1:2] == "." and "." in text[2:]:
+        return text[2:]
+    return around.prefix + text
+
+
+def _formula(
+    netlist: Netlist, draft: Draft, around: Surroundings, part: ElementCard, site: Site
+) -> circuit.Formula | None:
+    if part.behaviour is None:
+        return None
+    at = part.behaviour.at
+
+    def number(text: str) -> float | None:
+        return find(around.scope, fold(text))
+
+    found = formula_of(
+        site,
+        part.behaviour,
+        parameter=number,
+        known=lambda: list(known_names(around.scope)),
+        node=lambda text: _node(netlist, draft, around, Word(text, at)),
+        source=lambda text: _reference(around, Word(text, at)),
+    )
+    if part.table:
+        return circuit.Apply("table", (found, *map(circuit.Number, part.table)))
+    return found
+
+
+def _refused(
+    netlist: Netlist, site: Site, card: Fields, element: Element, model: ModelCard | None, refusal: Refusal
+) -> NetlistError:
+    """Make the message for an element that can be read but not reviewed: at the culprit on the model or on its card."""
+    letter = element.letter
+    if not families_of(letter):
+        return site.fault(
+            card.name, f"{card.name.text}: {PLURAL[letter]} ({letter}) are not supported by this version", READ_ONLY
+        )
+    where = model.places.get(fold(refusal.parameter)) if model else None
+    if model is not None and where is not None:
+        user = (f"used by {visible(element.name)} ({site.where})",)
+        return Site(netlist.files, netlist.cards[model.model.card], user).fault(where, refusal.reason, refusal.hint)
+    setting = next((s for s in card.settings if fold(s.name.text) == fold(refusal.parameter)), None)
+    return site.fault(setting or card.name, refusal.reason, refusal.hint)
 
 
 def _not_read(site: Site, letter: str) -> NetlistError:
     word = site.card.text.split(maxsplit=1)[0]
     if letter in NOT_READ:
-        message = f"{word}: {NOT_READ[letter]} ({letter}) are not supported by this version"
+        message = f"{word}: {NOT_READ[letter]} are not supported"
         return site.fault(0, message, f"read are: {', '.join(sorted(READ))}", wide=len(word))
     message = f"no element begins with {visible(word[0])!r}"
     return site.fault(0, message, "a comment begins with *, a continuation with +", wide=len(word))
@@ -146,52 +289,6 @@ def _node(netlist: Netlist, draft: Draft, around: Surroundings, word: Word) -> i
     return node_number(draft, around.prefix + word.text) if port is None else port
 
 
-def _add(
-    netlist: Netlist,
-    draft: Draft,
-    around: Surroundings,
-    card: int,
-    letter: str,
-    name: str,
-    nodes: tuple[Word, ...],
-    model: str,
-    parameters: tuple[tuple[str, float], ...],
-) -> Element:
-    numbers = tuple(_node(netlist, draft, around, node) for node in nodes)
-    element = Element(letter, name, numbers, model, parameters, card, around.path)
-    draft.elements.append(element)
-    return element
-
-
-def _device(
-    netlist: Netlist,
-    draft: Draft,
-    around: Surroundings,
-    number: int,
-    site: Site,
-    card: Fields,
-    name: str,
-    family: Family,
-) -> None:
-    seen = dict(reversed(list(_visible_models(netlist, around))))
-    part = device(site, card, family, frozenset(seen), around.scope)
-    found = _model(netlist, draft, seen[fold(part.model.text)], fold(part.model.text), family)
-    m = _product(around, part.m, name, site)
-    parameters = part.parameters if m == 1.0 else (*part.parameters, ("m", m))
-    if fold(name) in draft.changed_elements:
-        draft.fixed.add(fold(name))
-    element = _add(netlist, draft, around, number, family.letter, name, part.nodes, found.model.name, parameters)
-    refusal = family.refuse(element, found.model)
-    if refusal is None:
-        return
-    where = found.places.get(fold(refusal.parameter))
-    if where is not None:
-        user = (f"used by {visible(name)} ({site.where})",)
-        raise Site(netlist.files, netlist.cards[found.model.card], user).fault(where, refusal.reason, refusal.hint)
-    setting = next((s for s in card.settings if fold(s.name.text) == fold(refusal.parameter)), None)
-    raise site.fault(setting or card.name, refusal.reason, refusal.hint)
-
-
 def _visible_models(netlist: Netlist, around: Surroundings) -> Iterator[tuple[str, tuple[Surroundings, int]]]:
     """Run through the models that can be seen, nearest first; of two in one place the first counts."""
     here: Surroundings | None = around
@@ -201,20 +298,26 @@ def _visible_models(netlist: Netlist, around: Surroundings) -> Iterator[tuple[st
         here = here.lexical
 
 
-def _model(netlist: Netlist, draft: Draft, found: tuple[Surroundings, int], key: str, family: Family) -> ModelCard:
+def _model(netlist: Netlist, draft: Draft, found: tuple[Surroundings, int], word: Word, letter: str) -> ModelCard:
     """Read a model where it stands, once for each instance that holds it, with the changes for it."""
     home, number = found
+    key = fold(word.text)
+    types = PASSIVE_MODELS[letter] if letter in PASSIVES else MODELLED[letter].model_types
     known = home.models.get(key)
-    if known is not None and known.model.type in family.model_types:
+    if known is not None and known.model.type in types:
         return known
     site = Site(netlist.files, netlist.cards[number], home.context)
     name = netlist.items[number][1]
     assert isinstance(name, Word)
     flat = f"{home.prefix.removesuffix('.')}:{name.text}" if home.prefix else name.text
-    card = read_model(site, netlist.items[number], family, home.scope, name=flat, card=number, path=home.path)
+    words = PASSIVES[letter] if letter in PASSIVES else MODELLED[letter].words
+    card = read_model(
+        site, netlist.items[number], types, words, home.scope, letter=letter, name=flat, card=number, path=home.path
+    )
     values = dict(card.model.parameters)
+    settable = frozenset().union(*(family.model_parameters for family in families_of(letter))) | values.keys()
     for owner, parameter in [key for key in draft.changed_models if key[0] == fold(flat)]:
-        if parameter in family.model_parameters:
+        if parameter in settable:
             values[parameter] = draft.changed_models.pop((owner, parameter))[2]
     card = replace(card, model=replace(card.model, parameters=tuple(values.items())))
     twins = [other for other in home.definition.models if model_name(netlist.items[other]) == key]
@@ -249,6 +352,7 @@ def _instance(
     path = len(draft.instances)
     draft.instances.append(Instance(name, definition.name, number, definition.card, around.path))
     context = (f"in {visible(name)} ({site.where}), subcircuit {visible(definition.name)} ({where})", *around.context)
+    draft.contexts.append(context)
     scope = _scope(netlist, around, definition, call, site, context)
     inner = Surroundings(
         definition=definition,

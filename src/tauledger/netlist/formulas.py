@@ -1,4 +1,7 @@
-"""Formulas of the numeric dialect ({..}, '..', .param) as trees: what the text says, before any value is known."""
+"""Formulas of both dialects as trees: what the text says, before any value is known.
+
+Numeric: {..}, '..', .param. Behavioural: B, E, G, and R C L given by a formula.
+"""
 
 from __future__ import annotations
 
@@ -37,7 +40,15 @@ class Call(Struct, frozen=True):
     at: int
 
 
-Tree = Number | Name | Operation | Call
+class Probe(Struct, frozen=True):
+    """v(plus, minus), v(plus) or i(element) in a behavioural expression; the names are not expressions."""
+
+    kind: str
+    names: tuple[str, ...]
+    at: int
+
+
+Tree = Number | Name | Operation | Call | Probe
 
 
 class Formula(Struct, frozen=True):
@@ -45,6 +56,15 @@ class Formula(Struct, frozen=True):
 
     at: offset of its first character in the card, brace included. inner: offset of the text.
     """
+
+    text: str
+    at: int
+    inner: int
+    tree: Tree
+
+
+class Behaviour(Struct, frozen=True):
+    """A behavioural expression: its text, where it and its text begin in the card, and the tree."""
 
     text: str
     at: int
@@ -60,5 +80,5 @@ def names(tree: Tree) -> Iterator[str]:
         case Operation(operands=inner) | Call(arguments=inner):
             for part in inner:
                 yield from names(part)
-        case Number():
+        case Number() | Probe():
             return

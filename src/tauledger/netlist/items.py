@@ -9,7 +9,7 @@ from collections.abc import Iterable, Iterator
 
 from msgspec import Struct
 
-from tauledger.netlist.formulas import Formula
+from tauledger.netlist.formulas import Behaviour, Formula
 
 
 class Word(Struct, frozen=True):
@@ -26,7 +26,7 @@ class Quoted(Struct, frozen=True):
     at: int
 
 
-Value = Word | Formula | Quoted
+Value = Word | Formula | Quoted | Behaviour
 
 
 class Setting(Struct, frozen=True):
@@ -49,7 +49,7 @@ class Group(Struct, frozen=True):
     end: int
 
 
-Item = Word | Formula | Quoted | Setting | Group
+Item = Value | Setting | Group
 
 
 def width(item: Item) -> int:
@@ -59,6 +59,8 @@ def width(item: Item) -> int:
             return len(text)
         case Formula(text=text) | Quoted(text=text):
             return len(text) + 2
+        case Behaviour(text=text, at=at, inner=inner):
+            return len(text) + 2 * (inner - at)
         case Setting(name=name, value=value):
             return value.at + width(value) - name.at
         case Group(at=at, end=end):

@@ -44,18 +44,24 @@ def choose_drive(elements: Sequence[Element], wanted: str | None) -> Driven:
             )
         elements = [_with_ac(element, 1.0 if element is chosen else 0.0) for element in elements]
         return Driven(tuple(elements), (Drive(chosen.name, _kind(chosen), 1.0 + 0.0j),))
-    drive = tuple(
-        Drive(element.name, _kind(element), amplitude(element))
-        for element in sources
-        if element.parameter("acmag", 0.0) != 0.0
-    )
-    if not drive:
+    driven = driven_as_written(elements)
+    if not driven.drive:
         first = sources[0].name if sources else "Vin"
         raise InputError(
             "no source has an AC value",
             f"write AC 1 on the card of the source that carries the signal, or name it: --input {first}"
             + (f" (there are: {names})" if sources else ""),
         )
+    return driven
+
+
+def driven_as_written(elements: Sequence[Element]) -> Driven:
+    """Drive every source with an AC value; there may be none."""
+    drive = tuple(
+        Drive(element.name, _kind(element), amplitude(element))
+        for element in elements
+        if element.letter in "VI" and element.parameter("acmag", 0.0) != 0.0
+    )
     return Driven(tuple(elements), drive)
 
 

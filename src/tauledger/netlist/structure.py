@@ -10,7 +10,7 @@ from msgspec import Struct, field
 from tauledger.circuit import ReadingNote, fold
 from tauledger.errors import Diagnostic, NetlistError
 from tauledger.netlist.assignments import parse_assignments
-from tauledger.netlist.cards import parse_card
+from tauledger.netlist.cards import parse_card, parse_element
 from tauledger.netlist.diagnostics import Site, gather, nearest, visible
 from tauledger.netlist.items import Item, Setting, Word, flattened
 from tauledger.netlist.letters import READ, TIME_FUNCTIONS
@@ -128,7 +128,7 @@ def _sort(sorting: _Sorting, number: int, site: Site) -> tuple[Item, ...]:
         sorting.open[-1].elements.append(number)
         if word[0].upper() not in READ:
             return ()
-        items = parse_card(site)
+        items = parse_element(site)
         _count(sorting.past, word[0].upper(), items)
         return items
     if head in ANALYSES:

@@ -1,0 +1,172 @@
+"""The behavioural dialect of B, E, G and of R C L given by a formula: its grammar, and the formula of the circuit.
+
+As ngspice evaluates it during the run: x^y is |x|^y and so is pow(x, y), pwr(x, y) keeps the sign (in .param it is the
+other way round), log is the natural logarithm. Parameters are put in as numbers; pi and e win over parameters of that
+name.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Callable, Sequence
+from functools import cache
+from types import SimpleNamespace
+from typing import TYPE_CHECKING, Any
+
+from tauledger import circuit
+from tauledger.circuit import fold
+from tauledger.errors import NetlistError
+from tauledger.netlist.diagnostics import Site, nearest
+from tauledger.netlist.expressions import advice, check_length
+from tauledger.netlist.formulas import Behaviour, Call, Name, Number, Operation, Probe, Tree
+from tauledger.netlist.numbers import read_number
+
+if TYPE_CHECKING:
+    from lark import Lark, Token
+
+CONSTANTS = {"pi": math.pi, "e": math.e}
+VARIABLES = frozenset({"temper", "hertz", "time"})
+
+_ONE = """abs sgn sqrt exp ln log log10 sin cos tan asin acos atan sinh cosh tanh asinh acosh atanh floor ceil nint
+u u2 uramp ddt eq0 ne0 gt0 lt0 ge0 le0"""
+# Number of arguments; pwl takes a variable and pairs.
+FUNCTIONS: dict[str, int] = dict.fromkeys(_ONE.split(), 1)
+FUNCTIONS |= {"min": 2, "max": 2, "pow": 2, "pwr": 2, "ternary_fcn": 3, "pwl": -1}
+
+_SAME = {"**": "^", "<>": "!=", "negative": "-", "positive": "+", "?": "?:"}
+
+
+def parse_behaviour(site: Site, text: str, at: int, inner: int) -> Behaviour:
+    """Parse the text of a behavioural expression.
+
+    at, inner: offsets in the card of its first character, quote included, and of the text.
+    Raises NetlistError at the character where it stops making sense.
+    """
+    from lark import UnexpectedCharacters, UnexpectedToken
+
+    if not text.strip():
+        raise site.fault(at, "the formula is empty", "write a number or a formula", wide=len(text) + inner - at + 1)
+    check_length(site, text, at)
+    # Inside a behavioural expression braces are parentheses: parameters are known by name.
+    plain = text.translate({ord("{"): "(", ord("}"): ")"})
+    try:
+        parsed: Any = _parser().parse(plain)
+    except UnexpectedCharacters as error:
+        where = error.pos_in_stream or 0
+        raise site.fault(inner + where, f"{text[where]!r} cannot stand in a formula") from error
+    except UnexpectedToken as error:
+        if error.token.type == "$END":
+            unclosed = plain.count("(") > plain.count(")")
+            ends = "before its last parenthesis is closed" if unclosed else "too early"
+            hint = "" if unclosed else "an operator needs a value behind it"
+            raise site.fault(inner + len(text), f"the formula ends {ends}", hint) from error
+        where, found = error.pos_in_stream or 0, str(error.token)
+        message = f"{found!r} cannot stand here in a formula"
+        raise site.fault(inner + where, message, advice(plain, where, found)) from error
+    return Behaviour(text, at, inner, parsed)
+
+
+def formula_of(
+    site: Site,
+    given: Behaviour,
+    *,
+    parameter: Callable[[str], float | None],
+    known: Callable[[], Sequence[str]],
+    node: Callable[[str], int],
+    source: Callable[[str], str],
+) -> circuit.Formula:
+    """Turn an expression into the formula of an element.
+
+    parameter: value of a parameter by name, None where nobody defines it. known: names to suggest. node, source: number
+    of a node and flat name of a voltage source by the name on the card.
+    Raises NetlistError for a name or function that is not known and for a wrong number of arguments.
+    """
+
+    def fault(tree: Tree, message: str, hint: str = "") -> NetlistError:
+        wide = len(tree.text) if isinstance(tree, Name) else len(tree.function) if isinstance(tree, Call) else 1
+        return site.fault(given.inner + tree.at, message, hint, wide=wide)
+
+    def convert(tree: Tree) -> circuit.Formula:
+        match tree:
+            case Number(value=value):
+                return circuit.Number(value)
+            case Name(text=text):
+                key = fold(text)
+                if key in CONSTANTS:
+                    return circuit.Number(CONSTANTS[key])
+                if key in VARIABLES:
+                    return circuit.Variable(key)
+                value_of = parameter(text)
+                if value_of is None:
+                    hint = nearest(text, known(), otherwise=f"write v({text}) for the voltage of a node")
+                    raise fault(tree, f"no parameter is called {text!r}", hint)
+                return circuit.Number(value_of)
+            case Probe(kind="i", names=names):
+                return circuit.Current(source(names[0]))
+            case Probe(names=names):
+                return circuit.Voltage(node(names[0]), node(names[1]) if len(names) > 1 else 0)
+            case Operation(operator=sign, operands=operands):
+                return circuit.Apply(_SAME.get(sign, sign), tuple(convert(part) for part in operands))
+            case Call(function=name, arguments=arguments):
+                _check_call(tree, fault)
+                return circuit.Apply(fold(name), tuple(convert(part) for part in arguments))
+        raise TypeError(tree)
+
+    return convert(given.tree)
+
+
+def _check_call(tree: Call, fault: Callable[[Tree, str, str], NetlistError]) -> None:
+    name, count = fold(tree.function), len(tree.arguments)
+    if name in ("v", "i"):
+        message = "the voltage between nodes is v(node) or v(node,node)" if name == "v" else "a current is i(source)"
+        raise fault(tree, message, "")
+    arity = FUNCTIONS.get(name)
+    if arity is None:
+        raise fault(tree, f"no function of a source is called {tree.function!r}", nearest(name, FUNCTIONS))
+    if arity < 0 and (count < 5 or count % 2 == 0):
+        raise fault(tree, "pwl takes a value and at least two pairs of numbers", "write pwl(v(in), -1,-5, 1,5)")
+    if arity >= 0 and count != arity:
+        raise fault(tree, f"{name} takes {arity} argument{'s' if arity > 1 else ''}, not {count}", "")
+
+
+@cache
+def _parser() -> Lark:
+    from lark import Lark
+
+    def at(token: Token) -> int:
+        return token.start_pos or 0
+
+    def number(children: Sequence[Token]) -> Number:
+        decimal = read_number(str(children[0]))
+        if decimal is None:
+            raise ValueError(children[0])
+        return Number(decimal.value, at(children[0]))
+
+    def name(children: Sequence[Token]) -> Name:
+        return Name(str(children[0]), at(children[0]))
+
+    def probe(children: Sequence[Token]) -> Probe:
+        text = str(children[0])
+        inside = text[text.index("(") + 1 : -1]
+        return Probe(text[0].lower(), tuple(inside.replace(",", " ").split()), at(children[0]))
+
+    def leading(children: Sequence[Any]) -> Operation:
+        return Operation("negative" if children[0] == "-" else "positive", (children[1],), at(children[0]))
+
+    def denial(children: Sequence[Any]) -> Operation:
+        return Operation("!", (children[1],), at(children[0]))
+
+    def binary(children: Sequence[Any]) -> Operation:
+        return Operation(str(children[1]), (children[0], children[2]), at(children[1]))
+
+    def choose(children: Sequence[Any]) -> Operation:
+        return Operation("?", tuple(children), children[0].at)
+
+    def call(children: Sequence[Any]) -> Call:
+        return Call(str(children[0]), tuple(children[1:]), at(children[0]))
+
+    rules = (number, name, probe, leading, denial, binary, choose, call)
+    build = SimpleNamespace(**{rule.__name__: rule for rule in rules})
+    return Lark.open_from_package(
+        "tauledger.grammar", "behaviour.lark", ("",), parser="lalr", lexer="contextual", transformer=build
+    )

@@ -1,0 +1,85 @@
+"""Elements that others depend on: each must exist and be of the right kind; its name comes back as first written."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+
+from msgspec.structs import replace
+
+from tauledger.circuit import Apply, Current, Element, Formula, fold
+from tauledger.errors import Diagnostic
+from tauledger.netlist.diagnostics import Site, nearest, visible
+from tauledger.netlist.draft import Draft
+from tauledger.netlist.netlist import Netlist
+
+# What F, H, W and i() measure: the elements with a branch current of their own.
+MEASURED = frozenset("VEHL")
+
+
+def check_references(netlist: Netlist, draft: Draft, faults: list[Diagnostic]) -> None:
+    """Replace each reference by the name of the element it means; a fault is added for one that means none."""
+    inductors = {fold(row.name): row.name for row in draft.rows if row.kind == "L"}
+    inductors |= {fold(element.name): element.name for element in draft.elements if element.letter == "L"}
+    sources = {fold(element.name): element.name for element in draft.elements if element.letter == "V"}
+    measured = {fold(e.name): e.name for e in draft.elements if e.letter in MEASURED} | inductors
+    for k, element in enumerate(draft.elements):
+        if not element.references and element.formula is None:
+            continue
+        known, words = (inductors, "inductor") if element.letter == "K" else (sources, "voltage source")
+        resolved: list[str] = []
+        for name in element.references:
+            _resolve(netlist, draft, element, name, known, words, resolved, faults)
+        formula = None if element.formula is None else _renamed(element.formula, measured)
+        for name in _currents(formula):
+            _resolve(netlist, draft, element, name, measured, "element with a current", [], faults)
+        if len(resolved) == len(element.references):
+            draft.elements[k] = replace(element, references=tuple(resolved), formula=formula)
+
+
+def _resolve(
+    netlist: Netlist,
+    draft: Draft,
+    element: Element,
+    name: str,
+    known: Mapping[str, str],
+    words: str,
+    resolved: list[str],
+    faults: list[Diagnostic],
+) -> None:
+    found = known.get(fold(name))
+    if found is not None:
+        resolved.append(found)
+        return
+    site = Site(netlist.files, netlist.cards[element.card], draft.contexts[element.path])
+    prefix = draft.instances[element.path].name
+    local = name[len(prefix) + 1 :] if prefix else name
+    beside = [other[len(prefix) + 1 :] if prefix else other for other in known.values() if other.startswith(prefix)]
+    at = _at(site.card.text, local)
+    message = f"no {words} is called {visible(local)!r}"
+    hint = nearest(local, beside, otherwise="it must stand in the same subcircuit")
+    faults.extend(site.fault(at, message, hint, wide=len(local)).diagnostics)
+
+
+def _at(text: str, name: str) -> int:
+    """Find a name on its card, behind the element's own name."""
+    head = len(text.split(maxsplit=1)[0])
+    found = text.lower().find(name.lower(), head)
+    return 0 if found < 0 else found
+
+
+def _renamed(formula: Formula, names: Mapping[str, str]) -> Formula:
+    match formula:
+        case Current(source=source):
+            return Current(names.get(fold(source), source))
+        case Apply(function=function, arguments=arguments):
+            return Apply(function, tuple(_renamed(part, names) for part in arguments))
+    return formula
+
+
+def _currents(formula: Formula | None) -> list[str]:
+    match formula:
+        case Current(source=source):
+            return [source]
+        case Apply(arguments=arguments):
+            return [name for part in arguments for name in _currents(part)]
+    return []
