@@ -8,8 +8,7 @@ from pathlib import Path
 import numpy as np
 import pytest
 
-from tauledger.circuit import NO_CHANGE, Change
-from tauledger.devices.catalogue import observations
+from tauledger.circuit import NO_CHANGE, Change, Load
 from tauledger.engine.client import Engine
 from tauledger.engine.grid import decades
 from tauledger.netlist import elaborate, read
@@ -206,7 +205,7 @@ def edge_in_engine(path: Path, factors: dict[str, float], numbers: Numbers, near
 
 def edge_of_loaded(path: Path, change: Change, numbers: Numbers, near_hz: float, engine: Engine) -> float:
     circuit = elaborate(read(path), change)
-    engine.bias(circuit, observations(circuit))
+    engine.operating_point(circuit)
     reference_hz = numbers.midband.frequency_hz or 1e-6 * near_hz
     level = abs(engine.sweep([reference_hz]).response[0]) / math.sqrt(2.0)
     grid = np.geomspace(0.8 * near_hz, 1.25 * near_hz, 9)
@@ -216,3 +215,27 @@ def edge_of_loaded(path: Path, change: Change, numbers: Numbers, near_hz: float,
         grid = np.geomspace(grid[k], grid[k + 1], 9)
     position = math.log(level / gain[k]) / math.log(gain[k + 1] / gain[k])
     return float(grid[0] * (grid[-1] / grid[0]) ** position)
+
+
+def test_a_lone_source_gives_a_gain_whatever_its_ac_value(tmp_path: Path, engine: Engine) -> None:
+    text = (FIXTURES / "echo_preamp.cir").read_text()
+    path = tmp_path / "millivolt.cir"
+    path.write_text(text.replace("VIN echo 0 DC 0 AC 1", "VIN echo 0 DC 0 AC 1m 90"))
+    assert path.read_text() != text
+    assert review(path, engine=engine).midband == review(FIXTURES / "echo_preamp.cir", engine=engine).midband
+
+
+def test_one_picofarad_more_at_the_named_node_moves_the_edge_as_told(engine: Engine) -> None:
+    """The output of the cable driver hangs on its emitter through 200 nH: the row is named after the output."""
+    path = FIXTURES / "cable_driver.cir"
+    numbers = numbers_of(path, engine)
+    row = next(node for node in review(path, engine=engine).nodes if node.name == "out")
+    assert row.per_farad.f_high is not None
+    assert numbers.edges.f_high is not None
+    near_hz = numbers.edges.f_high.hz
+    assert near_hz is not None
+    moved = [
+        edge_of_loaded(path, Change(loads=(Load("C", "out", "0", farad),)), numbers, near_hz, engine)
+        for farad in (1e-12, 1e-15)
+    ]
+    assert row.per_farad.f_high * 1e-12 == pytest.approx(moved[0] - moved[1], rel=0.02, abs=0)

@@ -10,6 +10,7 @@ from collections.abc import Mapping
 
 import numpy as np
 from msgspec import Struct
+from msgspec.structs import replace
 from numpy.typing import NDArray
 
 from tauledger.circuit import Change, Circuit
@@ -40,6 +41,7 @@ class Numbers(Struct, frozen=True):
     """All numbers of one circuit under one condition: what a tolerance draw needs.
 
     poles: of the full network, with zeros. circuit, bias, simulated, agreement: None without netlist and engine.
+    midband_chosen: the user named the reference frequency.
     """
 
     network: Network
@@ -52,6 +54,7 @@ class Numbers(Struct, frozen=True):
     bias: Bias | None = None
     simulated: Simulated | None = None
     agreement: Agreement | None = None
+    midband_chosen: bool = False
 
     @property
     def trusted(self) -> bool:
@@ -74,7 +77,7 @@ def solve(
     netlist's own hints. midband_hz: reference frequency in Hz, None to find the plateau.
     Raises NetlistError or InputError where the circuit cannot be built, EngineError where ngspice gives no result.
     """
-    circuit = elaborate(netlist, change, drive=drive, output=output)
+    circuit = _per_unit(elaborate(netlist, change, drive=drive, output=output))
     bias = engine.operating_point(circuit)
     linearised = linearise(circuit, bias)
     network = Network.from_parts(linearised.parts, output=circuit.output)
@@ -95,6 +98,7 @@ def solve(
         bias=bias,
         simulated=simulated,
         agreement=agreed,
+        midband_chosen=midband_hz is not None,
     )
 
 
@@ -111,7 +115,15 @@ def solve_network(network: Network, *, devices: tuple[Device, ...] = (), midband
         edges=find_edges(network, midband),
         poles=find_poles(network),
         devices=devices,
+        midband_chosen=midband_hz is not None,
     )
+
+
+def _per_unit(circuit: Circuit) -> Circuit:
+    """Let a lone source drive with 1, so that H is a gain; several sources keep what relates them."""
+    if len(circuit.drive) != 1:
+        return circuit
+    return replace(circuit, drive=(replace(circuit.drive[0], amplitude=1.0),))
 
 
 def recompute(numbers: Numbers, scale: Mapping[str, float]) -> EdgeFrequencies:

@@ -66,9 +66,8 @@ class OutputFacts(Struct, frozen=True):
 class MidbandFacts(Struct, frozen=True):
     """The reference of all band edges: the plateau of highest gain.
 
-    from_hz, to_hz: its extent, both None where there is no plateau; 0 where it reaches DC; `to_hz` None with
-    `from_hz` set
-    where it has no upper limit. unit: V/V, ohm, S or A/A.
+    from_hz, to_hz: its extent, both None where there is no plateau; 0 where it reaches DC; `to_hz` None with `from_hz`
+    set where it has no upper limit. unit: V/V, Ω, S or A/A. chosen: the user named the frequency.
     """
 
     frequency_hz: float
@@ -78,6 +77,7 @@ class MidbandFacts(Struct, frozen=True):
     gain_imag: float
     gain_db: float
     unit: str
+    chosen: bool = False
 
 
 class AgreementFacts(Struct, frozen=True):

@@ -31,6 +31,7 @@ from tauledger.record import (
 
 # ln 9 / 2π: 10-90 % rise time of one pole times its -3 dB frequency
 RISE_TIME_BANDWIDTH = math.log(9.0) / (2.0 * math.pi)
+PEAKS = 0.1
 # ngspice and the network agree to 1e-9; a last step smaller than this says nothing.
 WORTH_A_STEP = 1e-4
 
@@ -51,7 +52,7 @@ def compose(numbers: Numbers, explanation: Explanation, *, netlist: Netlist | No
         temperature_c=numbers.circuit.temperature_c if numbers.circuit else 27.0,
         drive=drive_facts(numbers),
         output=output_facts(numbers),
-        midband=_midband_facts(midband, unit_of(numbers)),
+        midband=_midband_facts(midband, unit_of(numbers), chosen=numbers.midband_chosen),
         agreement=(
             AgreementFacts(numbers.agreement.max_relative_error, numbers.agreement.at_hz, numbers.agreement.points)
             if numbers.agreement
@@ -85,11 +86,11 @@ def _netlist_facts(netlist: Netlist | None, title: str) -> NetlistFacts:
     return NetlistFacts(netlist.path, netlist.title, netlist.sha256, read_past(netlist))
 
 
-def _midband_facts(midband: MidBand, unit: str) -> MidbandFacts:
+def _midband_facts(midband: MidBand, unit: str, *, chosen: bool) -> MidbandFacts:
     to_hz = midband.to_hz if midband.to_hz is not None and math.isfinite(midband.to_hz) else None
     gain_db = 20.0 * math.log10(abs(midband.gain))
     return MidbandFacts(
-        midband.frequency_hz, midband.from_hz, to_hz, midband.gain.real, midband.gain.imag, gain_db, unit
+        midband.frequency_hz, midband.from_hz, to_hz, midband.gain.real, midband.gain.imag, gain_db, unit, chosen
     )
 
 
@@ -108,6 +109,8 @@ def _edge_facts(name: EdgeName, numbers: Numbers, explanation: Explanation) -> E
     reference = simulated if numbers.simulated is not None else exact_hz
     if reference is None:
         return None
+    # 0.35/f_H holds for a response that falls like one pole; one that peaks is faster and overshoots
+    flat = exact is None or exact.peaking_db < PEAKS
     return EdgeFacts(
         simulated_hz=simulated,
         exact_hz=exact_hz,
@@ -117,7 +120,7 @@ def _edge_facts(name: EdgeName, numbers: Numbers, explanation: Explanation) -> E
         phase_deg=exact.phase_deg if exact else None,
         peaking_db=exact.peaking_db if exact else 0.0,
         peaking_at_hz=exact.peaking_at_hz if exact else None,
-        rise_time_s=RISE_TIME_BANDWIDTH / reference if name == "f_high" else None,
+        rise_time_s=RISE_TIME_BANDWIDTH / reference if name == "f_high" and flat else None,
     )
 
 

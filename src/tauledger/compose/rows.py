@@ -182,8 +182,10 @@ def _node_share(shares: Shares | None, node: SignalNode) -> float | None:
 
 
 def _per_farad(shares: Shares | None, node: SignalNode) -> float | None:
-    """Take the netlist's own node: a probe is soldered there, not inside a device."""
-    return shares.per_farad.get(node.members[0]) if shares else None
+    """Take the node that the row is named after: a probe is soldered there, not inside a device."""
+    if shares is None:
+        return None
+    return shares.per_farad.get(node.name, shares.per_farad.get(node.members[0]))
 
 
 def _lower_hand(explanation: Explanation, part: str) -> float | None:

@@ -112,7 +112,8 @@ def _midband(midband: MidbandFacts) -> str:
         size = f"{number(abs(gain), midband.unit)} at {math.degrees(math.atan2(gain.imag, gain.real)):.3g}°"
     at = "DC" if midband.frequency_hz == 0.0 else number(midband.frequency_hz, "Hz")
     if midband.from_hz is None:
-        return f"{decibel} ({size}) at {at}, the highest gain: there is no plateau"
+        why = "as asked, on no plateau" if midband.chosen else "the highest gain: there is no plateau"
+        return f"{decibel} ({size}) at {at}, {why}"
     start = "DC" if midband.from_hz == 0.0 else number(midband.from_hz, "Hz", 3)
     end = "without upper limit" if midband.to_hz is None else f"to {number(midband.to_hz, 'Hz', 3)}"
     return f"{decibel} ({size}) at {at}, plateau from {start} {end}"
