@@ -42,12 +42,15 @@ def looking_in(circuit: EquivalentCircuit, node: str, label: str) -> LookingIn:
     return _branch_form(circuit, node, label, exact, None if spent else rule_ohm) or LookingIn(
         exact,
         "solved",
-        f"R({label}) = {plain(exact)}, solved"
-        + ("" if spent else f"; looking in without the loops gives {plain(rule_ohm)}"),
+        f"R({label}) = {plain(exact)}, solved" + ("" if spent else f"; {_misses(circuit)} gives {plain(rule_ohm)}"),
         _resistances(found),
         "solved",
         rule_ohm=None if spent else rule_ohm,
     )
+
+
+def _misses(circuit: EquivalentCircuit) -> str:
+    return "looking in without the capacitors that set the gain" if circuit.s_mid else "looking in without the loops"
 
 
 def loop_resistance(circuit: EquivalentCircuit, node: str, k: int) -> float:

@@ -16,14 +16,18 @@ from tauledger.circuit import GROUND
 from tauledger.devices.family import Device
 from tauledger.hand.budget import resistance_across
 from tauledger.hand.equivalent import EquivalentCircuit, equivalent_circuit, joined, joined_nodes
-from tauledger.hand.estimate import LowerRow
+from tauledger.hand.estimate import LookingIn, LowerRow
+from tauledger.hand.figures import plain
 from tauledger.hand.nodes import node_title
 from tauledger.network.bands import Bands
+from tauledger.network.lower import ShortConstant, short_constants
 from tauledger.network.solve import response
+from tauledger.quantity import engineering
 
 WEIGHT_IN_PATH = 0.05
 EDGE_IN_PATH = 0.02
 BLOCKS = 1e-6
+ACCEPTED = 0.01
 
 
 def lower_rows(bands: Bands, devices: tuple[Device, ...]) -> tuple[LowerRow, ...]:
@@ -38,6 +42,7 @@ def lower_rows(bands: Bands, devices: tuple[Device, ...]) -> tuple[LowerRow, ...
     network = bands.network
     shorts = [p for p in network.parts if p.kind == "capacitance" and bands.class_of[p.name] == "short" and p.value]
     opens = {p.name for p in network.parts if p.kind in ("capacitance", "transcapacitance") and p not in shorts}
+    opens -= bands.gain_setting
     chokes = {p.name for p in network.parts if p.kind == "inductance" and bands.class_of[p.name] == "open"}
     direct = _direct_nodes(bands)
     groups: dict[tuple[str, ...], list[str]] = {}
@@ -50,13 +55,14 @@ def lower_rows(bands: Bands, devices: tuple[Device, ...]) -> tuple[LowerRow, ...
     found: list[tuple[LowerRow, float]] = []
     for ends, names in groups.items():
         smaller, merged = joined(network, all_shorts - {*names}, {*names, *opens, *chokes})
-        circuit = equivalent_circuit(smaller, merged, devices, network)
+        circuit = equivalent_circuit(smaller, merged, devices, network, bands.s_mid)
         a, b = (circuit.at[node] for node in ends)
         if a == b:
             continue
         found.append(_row(bands, circuit, (a, b), tuple(names), sum(farad[name] for name in names)))
     scale = sum(abs(weight * row.edge_exact_hz) for row, weight in found)
-    return tuple(_judged(row, weight, scale) for row, weight in found)
+    rows = tuple(_judged(row, weight, scale) for row, weight in found)
+    return (*rows, *_gain_rows(bands)) if bands.gain_setting else rows
 
 
 def _row(
@@ -65,6 +71,10 @@ def _row(
     """Give the row, not yet judged, and its weight 1 − H(open)/H(short)."""
     seen = resistance_across(circuit, *ends)
     exact = circuit.across(*ends)
+    if circuit.s_mid:
+        exact = _parallel_ohm(circuit, *ends)
+        if abs(seen.ohm - exact) > ACCEPTED * abs(exact):
+            seen = _solved(exact, "the capacitors that set the gain are part of it")
     edge = _edge(exact, farad)
     passed = _gain_left(bands, circuit)
     row = LowerRow(
@@ -81,6 +91,41 @@ def _row(
     return row, 1.0 - passed
 
 
+def _gain_rows(bands: Bands) -> tuple[LowerRow, ...]:
+    """Give a row for every capacitor that sets the gain: what it holds of the poles below mid-band."""
+    return tuple(
+        LowerRow(
+            parts=constant.names,
+            title=f"gain-setting {' ‖ '.join(constant.names)}",
+            farad=constant.value,
+            resistance=_solved(constant.resistance_ohm, f"its part of the poles below mid-band, {_hertz(constant)}"),
+            resistance_exact_ohm=constant.resistance_ohm,
+            edge_hand_hz=constant.edge_hz,
+            edge_exact_hz=constant.edge_hz,
+            zero_hz=constant.zero_hz,
+            in_path=constant.in_path and constant.edge_hz > 0.0,
+        )
+        for constant in short_constants(bands).parts
+        if bands.gain_setting.issuperset(constant.names)
+    )
+
+
+def _hertz(constant: ShortConstant) -> str:
+    return engineering(constant.edge_hz, "Hz", 3)
+
+
+def _solved(ohm: float, why: str) -> LookingIn:
+    return LookingIn(ohm, "solved", f"R = {plain(ohm)}, solved: {why}", (), "solved")
+
+
+def _parallel_ohm(circuit: EquivalentCircuit, a: str, b: str) -> float:
+    """Give 1/Re(1/Z) in ohm, Z the complex impedance between two nodes at mid-band."""
+    rows = [(circuit.row[node], sign) for node, sign in ((a, 1.0), (b, -1.0)) if node != GROUND]
+    z = sum(si * sj * complex(circuit.whole[i, j]) for i, si in rows for j, sj in rows)
+    siemens = (1.0 / z).real if z else math.inf
+    return 1.0 / siemens if siemens else math.inf
+
+
 def _judged(row: LowerRow, weight: float, scale: float) -> LowerRow:
     part = abs(weight * row.edge_exact_hz) / scale if scale else 0.0
     if weight >= WEIGHT_IN_PATH or part >= EDGE_IN_PATH:
@@ -91,7 +136,8 @@ def _judged(row: LowerRow, weight: float, scale: float) -> LowerRow:
 
 def _gain_left(bands: Bands, circuit: EquivalentCircuit) -> float:
     """Give H(open)/H(short): the part of the mid-band gain that is left with the capacitor open."""
-    short = complex(response(bands.upper, np.zeros(1))[0])
+    at_hz = bands.midband.frequency_hz if bands.gain_setting else 0.0
+    short = complex(response(bands.upper, np.array([at_hz]))[0])
     left = float((circuit.response / short).real)
     return 0.0 if abs(left) < BLOCKS else left
 

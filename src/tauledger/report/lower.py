@@ -11,7 +11,7 @@ _ROWS = 6
 
 
 def lower_edge(review: Review, *, verbose: bool = False) -> Section:
-    """Give R, edge, zero, share and what 10 % less gives, for every capacitor in the path that is short or sets the gain."""
+    """Give R, edge, zero, share and what 10 % less gives, for every capacitor in the path that is no open."""
     short = [
         part for part in review.parts if part.klass in ("short", "gain") and part.kind in ("capacitance", "inductance")
     ]
@@ -35,7 +35,8 @@ def lower_edge(review: Review, *, verbose: bool = False) -> Section:
     for word, says in (("gain", "sets the mid-band gain"), ("tuned", "resonates, neither short nor open")):
         named = [part_title(part.name, part.owner) for part in review.parts if part.klass == word]
         if named:
-            remarks.append(f"{', '.join(named)} {says}")
+            verb, _, rest = says.partition(" ")
+            remarks.append(f"{', '.join(named)} {verb if len(named) == 1 else verb[:-1]} {rest}")
     remarks += [f"10 % less of {group[0].name} alone" for group in rows if len(group) > 1]
     if any(group[0].resistance_hand_ohm is None for group in rows):
         remarks.append(f"{SOLVED} exact: no hand rule fits")
