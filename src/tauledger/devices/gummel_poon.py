@@ -14,7 +14,14 @@ from collections.abc import Mapping
 
 from tauledger.circuit import GROUND, Circuit, Element, Model
 from tauledger.devices.family import Device, Family, Refusal, Terminal, Transconductor, inner_node, names, readings_of
-from tauledger.devices.parts import Part, capacitance, conductance, transcapacitance, transconductance
+from tauledger.devices.parts import (
+    Part,
+    capacitance,
+    conductance,
+    delayed_transconductance,
+    transcapacitance,
+    transconductance,
+)
 from tauledger.solution import Bias, Observation
 
 BOLTZMANN = 1.380649e-23  # J/K, SI 2019
@@ -77,6 +84,26 @@ def vertical_substrate(model: Model) -> bool:
     return model.parameter("subs", 1.0 if model.type == "npn" else -1.0) > 0.0
 
 
+def excess_delay(model: Model) -> float:
+    """Give the delay in s of the collector current by excess phase: PTF (degrees at 1/(2π·TF)) times TF.
+
+    ngspice takes TF as on the model card, whatever the temperature and the bias.
+    """
+    return math.radians(model.parameter("ptf", 0.0)) * model.parameter("tf", 0.0)
+
+
+def _transconductances(
+    name: str, out: tuple[str, str], control: tuple[str, str], gm: float, g_o: float, delay_s: float
+) -> tuple[Part, ...]:
+    """gm alone, or with excess phase (gm + g_o)·exp(−s·τ) − g_o: what is delayed is the transport current."""
+    if delay_s == 0.0:
+        return (transconductance(name, out, control, gm, "gm"),)
+    return (
+        delayed_transconductance(name, out, control, gm + g_o, delay_s, "gm"),
+        transconductance(name, out, control, -g_o, "gm_0"),
+    )
+
+
 def _observe(element: Element) -> Observation | None:
     return Observation(element.name, READINGS)
 
@@ -95,12 +122,6 @@ def _refuse(_element: Element, model: Model | None) -> Refusal | None:
             "rco",
             "quasi-saturation (RCO) cannot be rebuilt: ngspice does not tell the derivatives of the collector region",
             "leave RCO out, and put the collector resistance into RC",
-        )
-    if model.parameter("ptf", 0.0) != 0.0:
-        return Refusal(
-            "ptf",
-            "excess phase (PTF) is a delay, which the network of conductances and capacitances cannot hold",
-            "leave PTF out, or set it to 0",
         )
     return None
 
@@ -128,7 +149,7 @@ def _linearise(circuit: Circuit, element: Element, bias: Bias) -> Device:
         conductance(name, b, bi, g_b, "g_b"),
         conductance(name, c, ci, g_c, "g_c"),
         conductance(name, e, ei, g_e, "g_e"),
-        transconductance(name, (ci, ei), (bi, ei), gm, "gm"),
+        *_transconductances(name, (ci, ei), (bi, ei), gm, g_o, excess_delay(model)),
         conductance(name, bi, ei, g_pi, "g_pi"),
         conductance(name, bi, ci, g_mu, "g_mu"),
         conductance(name, ci, ei, g_o, "g_o"),

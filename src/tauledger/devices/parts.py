@@ -4,7 +4,12 @@ Signs. Conductance, capacitance and inductance stand between nodes (a, b). A tra
 has
 nodes (out_plus, out_minus, control_plus, control_minus) and carries the current value·v(control) resp.
 value·dv(control)/dt
-from out_plus through itself to out_minus, like a SPICE G element. A voltage source forces v(a) - v(b); its branch
+from out_plus through itself to out_minus, like a SPICE G element. A delayed transconductance carries
+value·v(control) as it was `delay_s` before. A voltage gain (SPICE E) has the same four nodes and forces
+v(out_plus) - v(out_minus) = value·v(control). A current gain (F) and a transresistance (H) have two nodes and refer to
+the voltage source whose branch current i they sense: the first carries value·i, the second forces value·i. A mutual
+inductance has the nodes of two inductances, which it refers to; it adds value·di(second)/dt to the voltage of the
+first, so that a pair of them couples both ways. A voltage source forces v(a) - v(b); its branch
 current flows from a through the source to b. A current source pushes its current from a through itself to b.
 """
 
@@ -22,15 +27,23 @@ PartKind = Literal[
     "transcapacitance",
     "voltage source",
     "current source",
+    "voltage gain",
+    "current gain",
+    "transresistance",
+    "mutual inductance",
+    "delayed transconductance",
 ]
+
+WITH_BRANCH = ("voltage source", "inductance", "voltage gain", "transresistance")
 
 
 class Part(Struct, frozen=True):
     """One primitive: who it belongs to ("Q1"), what it is there ("c_mu", empty for a plain card), where and how
     much.
 
-    nodes: two names, or four for the controlled kinds. value: S, F, H, S, F; for sources 0.
-    amplitude: complex drive in V or A, of sources only.
+    nodes: two names, or four for the controlled kinds. value: S, F, H, S, F; for sources 0; V/V, A/A, ohm, H, S.
+    amplitude: complex drive in V or A, of sources only. references: owners of the branches that it senses or couples.
+    delay_s: of a delayed transconductance.
     """
 
     kind: PartKind
@@ -39,6 +52,8 @@ class Part(Struct, frozen=True):
     nodes: tuple[str, ...]
     value: float
     amplitude: complex = 0.0
+    references: tuple[str, ...] = ()
+    delay_s: float = 0.0
 
     @property
     def name(self) -> str:
@@ -76,6 +91,38 @@ def transconductance(
 def transcapacitance(owner: str, out: tuple[str, str], control: tuple[str, str], farad: float, label: str = "") -> Part:
     """A current farad·dv(control)/dt from out[0] through the part to out[1]."""
     return Part("transcapacitance", owner, label, (*out, *control), farad)
+
+
+def delayed_transconductance(
+    owner: str, out: tuple[str, str], control: tuple[str, str], siemens: float, delay_s: float, label: str = ""
+) -> Part:
+    """A current siemens·v(control) of `delay_s` before, from out[0] through the part to out[1]."""
+    return Part("delayed transconductance", owner, label, (*out, *control), siemens, delay_s=delay_s)
+
+
+def voltage_gain(owner: str, out: tuple[str, str], control: tuple[str, str], gain: float, label: str = "") -> Part:
+    """A source that forces v(out[0]) - v(out[1]) to gain·v(control), V/V; its current is an unknown of the network."""
+    return Part("voltage gain", owner, label, (*out, *control), gain)
+
+
+def current_gain(owner: str, a: str, b: str, gain: float, sensed: str, label: str = "") -> Part:
+    """A current gain·i from a through the part to b, A/A, with i the branch current of the owner `sensed`."""
+    return Part("current gain", owner, label, (a, b), gain, references=(sensed,))
+
+
+def transresistance(owner: str, a: str, b: str, ohm: float, sensed: str, label: str = "") -> Part:
+    """A source that forces v(a) - v(b) to ohm·i, with i the branch current of the owner `sensed`."""
+    return Part("transresistance", owner, label, (a, b), ohm, references=(sensed,))
+
+
+def mutual_inductances(
+    owner: str, first: str, second: str, ends: tuple[str, str, str, str], henry: float
+) -> tuple[Part, Part]:
+    """The coupling of two inductances, both ways: first, second are their owners, ends their four nodes."""
+    return (
+        Part("mutual inductance", owner, "m_12", ends, henry, references=(first, second)),
+        Part("mutual inductance", owner, "m_21", (*ends[2:], *ends[:2]), henry, references=(second, first)),
+    )
 
 
 def voltage_source(owner: str, a: str, b: str, amplitude: complex = 0.0) -> Part:

@@ -3,7 +3,9 @@
 Y(s) = G + s·C acts on the unknowns x = (node voltages, branch currents); Y x = b is the forward problem with the
 drive b,
 Yᵀ λ = e the adjoint problem with the output e, and H = eᵀ x = λᵀ b.
-Branch unknowns belong to voltage sources (v_a - v_b = V) and inductors (v_a - v_b - s·L·i = 0).
+Branch unknowns belong to voltage sources (v_a - v_b = V), inductors (v_a - v_b - s·L·i - Σ s·M·i_k = 0), voltage gains
+(v_a - v_b - A·v(control) = 0) and transresistances (v_a - v_b - R·i_k = 0).
+G holds a delayed transconductance as it is at s = 0; `admittance` alone knows the delay.
 
 Source: Ho, Ruehli and Brennan, "The modified nodal approach to network analysis", IEEE Trans. Circuits Syst.
 CAS-22(6), 1975.
@@ -18,7 +20,7 @@ from msgspec import Struct
 from numpy.typing import NDArray
 
 from tauledger.circuit import GROUND, Port, fold
-from tauledger.devices.parts import Part
+from tauledger.devices.parts import WITH_BRANCH, Part, voltage_source
 from tauledger.errors import NetworkError
 
 
@@ -42,7 +44,7 @@ class Network(Struct, frozen=True):
     parts: what it was built from. unknowns: node names, then the owners of the branch currents. n_nodes: how
     many are nodes.
     conductance G and capacitance C: triplets of order n. drive b: (n,) complex, V or A. output e: (n,) real.
-    amplitudes: complex amplitude of every source by its folded name, V or A.
+    amplitudes: complex amplitude of every source by its folded name, V or A. delayed: the parts with a delay.
     """
 
     parts: tuple[Part, ...]
@@ -54,13 +56,14 @@ class Network(Struct, frozen=True):
     drive: NDArray[np.complex128]
     output: NDArray[np.float64]
     amplitudes: Mapping[str, complex]
+    delayed: tuple[Part, ...] = ()
 
     @classmethod
     def from_parts(cls, parts: Iterable[Part], *, output: Port, drive: Mapping[str, complex] | None = None) -> Network:
         """Assemble parts into a network.
 
         drive: complex amplitude by source name; sources not named keep the amplitude of their part.
-        Raises NetworkError where the output names a node or branch that no part touches.
+        Raises NetworkError where the output, or a part, names a node or branch that no part has.
         """
         return assemble(tuple(parts), output, {fold(name): value for name, value in (drive or {}).items()})
 
@@ -74,7 +77,7 @@ class Network(Struct, frozen=True):
         return None if node == GROUND else self.unknowns[: self.n_nodes].index(node)
 
     def branch(self, owner: str) -> int:
-        """Give the row of the branch current of a voltage source or inductor."""
+        """Give the row of the branch current of a voltage source, inductor, voltage gain or transresistance."""
         return self.n_nodes + [fold(name) for name in self.unknowns[self.n_nodes :]].index(fold(owner))
 
     def amplitude(self, source: Part) -> complex:
@@ -92,14 +95,16 @@ class Network(Struct, frozen=True):
 def assemble(parts: tuple[Part, ...], port: Port, drive: Mapping[str, complex]) -> Network:
     """Stamp every part; `drive` overrides the amplitudes of the sources it names (folded).
 
-    Raises NetworkError where the output names a node or branch that no part touches, or where two parts share a name.
+    Raises NetworkError where the output names a node or branch that no part touches, where two parts share a name, and
+    where a part refers to a branch that is not there.
     """
     names = [part.name for part in parts]
     if len(set(names)) < len(names):
         twice = sorted({name for name in names if names.count(name) > 1})
         raise NetworkError(f"two parts of one name: {', '.join(twice)}")
     nodes = list(dict.fromkeys(node for part in parts for node in part.nodes if node != GROUND))
-    branches = [part.owner for part in parts if part.kind in ("voltage source", "inductance")]
+    branches = [part.owner for part in parts if part.kind in WITH_BRANCH]
+    row_of = {fold(owner): row for row, owner in enumerate(branches, start=len(nodes))}
     at: dict[str, int] = {node: row for row, node in enumerate(nodes)}
     n = len(nodes) + len(branches)
     g_rows: list[tuple[int, int, float]] = []
@@ -113,13 +118,29 @@ def assemble(parts: tuple[Part, ...], port: Port, drive: Mapping[str, complex]) 
     }
     for part in parts:
         rows = [at.get(node, -1) for node in part.nodes]
+        if missing := [owner for owner in part.references if fold(owner) not in row_of]:
+            raise NetworkError(f"{part.name} refers to {missing[0]}, which has no branch")
+        sensed = [row_of[fold(owner)] for owner in part.references]
         match part.kind:
             case "conductance" | "capacitance":
                 p, m = rows
                 _stamp(g_rows if part.kind == "conductance" else c_rows, (p, m), (p, m), part.value)
-            case "transconductance" | "transcapacitance":
+            case "transconductance" | "transcapacitance" | "delayed transconductance":
                 p, m, cp, cm = rows
-                _stamp(g_rows if part.kind == "transconductance" else c_rows, (p, m), (cp, cm), part.value)
+                _stamp(c_rows if part.kind == "transcapacitance" else g_rows, (p, m), (cp, cm), part.value)
+            case "current gain":
+                p, m = rows
+                g_rows += [(p, sensed[0], part.value), (m, sensed[0], -part.value)]
+            case "mutual inductance":
+                c_rows.append((sensed[0], sensed[1], -part.value))
+            case "voltage gain" | "transresistance":
+                p, m = rows[:2]
+                g_rows += [(p, branch, 1.0), (m, branch, -1.0), (branch, p, 1.0), (branch, m, -1.0)]
+                if part.kind == "voltage gain":
+                    g_rows += [(branch, rows[2], -part.value), (branch, rows[3], part.value)]
+                else:
+                    g_rows.append((branch, sensed[0], -part.value))
+                branch += 1
             case "voltage source" | "inductance":
                 p, m = rows
                 g_rows += [(p, branch, 1.0), (m, branch, -1.0), (branch, p, 1.0), (branch, m, -1.0)]
@@ -145,7 +166,24 @@ def assemble(parts: tuple[Part, ...], port: Port, drive: Mapping[str, complex]) 
         drive=b,
         output=_selector(port, at, branches, n),
         amplitudes=amplitudes,
+        delayed=tuple(part for part in parts if part.kind == "delayed transconductance"),
     )
+
+
+def without_loose_ends(parts: Iterable[Part]) -> tuple[Part, ...]:
+    """Leave out what refers to a branch that is no longer there: no current is sensed, nothing is coupled.
+
+    A transresistance then forces 0 V.
+    """
+    parts = tuple(parts)
+    owners = {fold(part.owner) for part in parts if part.kind in WITH_BRANCH}
+    kept: list[Part] = []
+    for part in parts:
+        if all(fold(owner) in owners for owner in part.references):
+            kept.append(part)
+        elif part.kind == "transresistance":
+            kept.append(voltage_source(part.owner, part.nodes[0], part.nodes[1]))
+    return tuple(kept)
 
 
 def incidence(network: Network, plus: str, minus: str) -> NDArray[np.float64]:

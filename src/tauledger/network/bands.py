@@ -12,7 +12,7 @@ from msgspec.structs import replace
 from tauledger.circuit import GROUND, Port, fold
 from tauledger.devices.parts import Part
 from tauledger.errors import NetworkError
-from tauledger.network.assemble import Network, assemble
+from tauledger.network.assemble import Network, assemble, without_loose_ends
 from tauledger.network.gain_setting import gain_setting
 from tauledger.network.midband import MidBand as MidBand
 from tauledger.network.midband import find_midband as find_midband
@@ -70,6 +70,7 @@ def classify(network: Network, midband: MidBand) -> Bands:
     itself in place: for one resistance across it r = x/√(1 + x²) with x = ωRC, and capacitors in parallel share one r.
     The limit is taken in the network of those capacitors that a first round with all of them found short; a capacitor
     that larger shorts bridge by way of a driven source counts for itself, r = |jωC·Z(jω)|.
+    Coupled inductors are neither: they stay as they are, class "tuned".
     An inductor is open where the dual with the admittance of its branch exceeds 0.707. r > 1.3 is resonance: tuned.
     Before that, a capacitor on which the mid-band gain depends is of class "gain" (gain_setting.py).
     The gain of the merged network is then compared with |H(f_mid)|; while it is more than 2 % off, the open capacitor
@@ -77,10 +78,13 @@ def classify(network: Network, midband: MidBand) -> Bands:
     """
     ratio = _ratios(network, midband.frequency_hz)
     setting = gain_setting(network, midband)
+    coupled = _coupled(network)
     class_of: dict[str, BandClass] = {}
     for part in network.parts:
         if part.kind == "transcapacitance":
             class_of[part.name] = "open"
+        elif part.kind == "mutual inductance" or fold(part.owner) in coupled:
+            class_of[part.name] = "tuned"
         elif part.kind in ("capacitance", "inductance"):
             class_of[part.name] = "gain" if part.name in setting else _class(part, ratio[part.name])
     error = _gain_error(network, midband, class_of)
@@ -201,10 +205,13 @@ def _ratios(network: Network, frequency_hz: float) -> dict[str, float]:
     first = dict(zip(terms.names, beyond * np.abs(_immittance(network, beyond, terms)), strict=True))
     fixed = joined_nodes(network, [part for part in network.parts if part.kind == "voltage source"])
     idle = {part.name for part in parts if part.value == 0.0 or fixed[part.nodes[0]] == fixed[part.nodes[1]]}
+    tied = _coupled(network)
+    coupling = {part.name for part in network.parts if part.kind == "mutual inductance" or fold(part.owner) in tied}
+    idle |= coupling
     acting = [part for part in parts if part.name not in idle and seen[part.name] > SHORT_ABOVE * first[part.name]]
     bridged = _bridged_by_the_drive(network, acting)
     # Beyond all poles a small capacitor is bridged by others that are open at mid-band: they do not stand beside it.
-    acts = {part.name for part in acting} - bridged
+    acts = ({part.name for part in acting} - bridged) | coupling
     try:
         limit = dict(zip(terms.names, beyond * np.abs(_limited(network, beyond, terms, acts)), strict=True))
     except NetworkError:
@@ -212,6 +219,11 @@ def _ratios(network: Network, frequency_hz: float) -> dict[str, float]:
     alone = {part.name: seen[part.name] * abs(value[part.name]) for part in parts if part.name in bridged}
     ratios = {part.name: float(seen[part.name] / limit[part.name]) for part in parts if part.name not in idle}
     return {part.name: 0.0 for part in parts} | ratios | alone
+
+
+def _coupled(network: Network) -> set[str]:
+    """Give the folded owners of the inductors that are coupled with others."""
+    return {fold(owner) for part in network.parts if part.kind == "mutual inductance" for owner in part.references}
 
 
 def _bridged_by_the_drive(network: Network, acting: list[Part]) -> set[str]:
@@ -291,17 +303,26 @@ def _renamed(network: Network, parts: list[Part], merged: Mapping[str, str]) -> 
         nodes = tuple(merged[node] for node in part.nodes)
         if not _is_empty(network, part, nodes):
             kept.append(replace(part, nodes=nodes))
+    kept = list(without_loose_ends(kept))
     port = network.port
     if port.kind == "voltage":
         port = Port(merged[port.plus], merged[port.minus])
-    drive = {part.owner: complex(network.amplitude(part)) for part in kept if part.kind.endswith("source")}
+    sources = ("voltage source", "current source")
+    drive = {
+        p.owner: complex(network.amplitude(p))
+        for p in kept
+        if p.kind in sources and fold(p.owner) in network.amplitudes
+    }
     return assemble(tuple(kept), port, {fold(name): value for name, value in drive.items()})
 
 
 def _is_empty(network: Network, part: Part, nodes: tuple[str, ...]) -> bool:
     if part.kind in ("capacitance", "transcapacitance") and part.value == 0.0:
         return True
-    loop = nodes[0] == nodes[1] or (len(nodes) == 4 and nodes[2] == nodes[3])
+    if part.kind == "mutual inductance":
+        return False
+    # a voltage gain without control still forces 0 V
+    loop = nodes[0] == nodes[1] or (len(nodes) == 4 and nodes[2] == nodes[3] and part.kind != "voltage gain")
     if not loop:
         return False
     if part.kind == "voltage source":

@@ -19,6 +19,7 @@ from msgspec import Struct
 from tauledger.circuit import GROUND
 from tauledger.devices.parts import PartKind
 from tauledger.errors import NetworkError
+from tauledger.network.admittance import delay_moments
 from tauledger.network.assemble import Network, incidence
 from tauledger.network.bands import Bands
 from tauledger.network.gain_setting import impedance, impedance_above
@@ -211,12 +212,15 @@ def open_constants(bands: Bands) -> OpenConstants:
 def group_delay(network: Network, frequency_hz: float) -> dict[str, float]:
     """Give each reactive part's contribution to the group delay −dφ/dω at one frequency, in s; they add to it.
 
-    Re(C·λ_ab·v_ab/H) for a capacitance, likewise for the other kinds.
+    Re(C·λ_ab·v_ab/H) for a capacitance, likewise for the other kinds; delays are parts of their own.
     Raises NetworkError where the network has no unique solution there.
     """
     terms = reactances(network)
-    delay = moments(terms, solve(network, on_axis(frequency_hz)))[0].real
-    return {name: float(value) for name, value in zip(terms.names, delay, strict=True)}
+    at = solve(network, on_axis(frequency_hz))
+    delay = moments(terms, at)[0].real
+    return {name: float(value) for name, value in zip(terms.names, delay, strict=True)} | {
+        name: float(moment[0].real) for name, moment in delay_moments(network, at).items()
+    }
 
 
 def _group_delay(network: Network, s: complex) -> float:

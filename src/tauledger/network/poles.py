@@ -15,6 +15,7 @@ from msgspec import Struct
 from numpy.typing import NDArray
 
 from tauledger.errors import NetworkError
+from tauledger.network.admittance import all_pass
 from tauledger.network.assemble import Network
 from tauledger.network.reactances import reactances
 from tauledger.network.solve import Complex, admittance
@@ -56,10 +57,11 @@ class PoleZeroMap(Struct, frozen=True):
 
 
 def find_poles(network: Network) -> PoleZeroMap:
-    """Find all finite poles and zeros with owners and cancelled pairs.
+    """Find all finite poles and zeros with owners and cancelled pairs; a delay is taken as an all-pass.
 
     Raises NetworkError where the network has no unique solution.
     """
+    network = all_pass(network)
     p = pole_frequencies(network)
     z = zero_frequencies(network, p)
     pole_cancelled, zero_cancelled = cancelled_pairs(p, z)

@@ -13,7 +13,7 @@ from tauledger.devices.parts import Part
 from tauledger.network.assemble import Network, Triplets, incidence
 from tauledger.network.solve import Complex, Real, Solution
 
-REACTIVE = ("capacitance", "inductance", "transcapacitance")
+REACTIVE = ("capacitance", "inductance", "transcapacitance", "mutual inductance")
 
 
 class Reactances(Struct, frozen=True):
@@ -31,7 +31,10 @@ class Reactances(Struct, frozen=True):
 
 
 def reactances(network: Network) -> Reactances:
-    """Give the rank-one terms of C, one per reactive part; an inductance acts on its own branch current."""
+    """Give the rank-one terms of C, one per reactive part; an inductance acts on its own branch current.
+
+    A mutual inductance acts on the branch of the first inductor by the current of the second.
+    """
     parts = tuple(part for part in network.parts if part.kind in REACTIVE)
     out = np.zeros((network.size, len(parts)))
     control = np.zeros_like(out)
@@ -39,6 +42,9 @@ def reactances(network: Network) -> Reactances:
         if part.kind == "inductance":
             row = network.branch(part.owner)
             out[row, k], control[row, k] = 1.0, -1.0
+        elif part.kind == "mutual inductance":
+            first, second = (network.branch(owner) for owner in part.references)
+            out[first, k], control[second, k] = 1.0, -1.0
         else:
             out[:, k] = incidence(network, part.nodes[0], part.nodes[1])
             control[:, k] = incidence(network, part.nodes[-2], part.nodes[-1])

@@ -16,7 +16,7 @@ from msgspec import Struct
 from msgspec.structs import replace
 
 from tauledger.errors import NetworkError
-from tauledger.network.assemble import Network, assemble
+from tauledger.network.assemble import Network, assemble, without_loose_ends
 from tauledger.network.edges import HALF_POWER, Edges, at_same_frequency, crossing, find_edges
 from tauledger.network.midband import MidBand
 from tauledger.network.reactances import Reactances, reactances
@@ -50,7 +50,7 @@ def without(network: Network, names: frozenset[str]) -> Network:
     """
     for name in names:
         network.part(name)
-    kept = tuple(part for part in network.parts if part.name not in names)
+    kept = without_loose_ends(part for part in network.parts if part.name not in names)
     return assemble(kept, network.port, network.amplitudes)
 
 

@@ -16,6 +16,7 @@ from collections.abc import Mapping
 import numpy as np
 from msgspec import Struct
 
+from tauledger.network.admittance import delay_moments
 from tauledger.network.assemble import Network
 from tauledger.network.bands import BandClass
 from tauledger.network.midband import MidBand
@@ -26,7 +27,7 @@ from tauledger.network.solve import Complex, Real, log_slope, on_axis, solve
 class Shares(Struct, frozen=True):
     """What sets one band edge, at frequency hz.
 
-    parts: −∂ln f/∂ln value by name of every capacitance, inductance and transcapacitance of the whole network.
+    parts: −∂ln f/∂ln value by name of every reactive part of the whole network, and of every delay.
     nodes: the rows λ_i·s(Cx)_i of the open capacitors by node of the whole network, on the same scale: a convention
     that gives a bridging capacitor to its two nodes as Miller's picture does. per_farad: ∂f/∂C in Hz/F for
     capacitance from that node to ground, free of any convention.
@@ -52,13 +53,17 @@ def find_shares(network: Network, midband: MidBand, edge_hz: float, class_of: Ma
     slope = float(slopes[0])
 
     def share(moment: Complex) -> Real:
-        lost: Real = (at.s[:, None] * moment).real
+        lost: Real = (at.s.reshape(-1, *[1] * (moment.ndim - 1)) * moment).real
         return np.asarray((lost[1] - lost[0]) / slope, dtype=np.float64)
 
     terms = reactances(network)
     of_parts = share(moments(terms, at))
     acts = ("open", "gain")
-    open_value = [p.value if p.kind != "inductance" and class_of[p.name] in acts else 0.0 for p in terms.parts]
+    of_delays = {name: float(share(moment)) for name, moment in delay_moments(network, at).items()}
+    open_value = [
+        p.value if p.kind not in ("inductance", "mutual inductance") and class_of[p.name] in acts else 0.0
+        for p in terms.parts
+    ]
     opened = (terms.out * np.array(open_value)) @ terms.control.T
     n = network.n_nodes
     per_response = at.adjoint / at.response[:, None]
@@ -69,7 +74,7 @@ def find_shares(network: Network, midband: MidBand, edge_hz: float, class_of: Ma
         hz=edge_hz,
         slope=slope,
         defect=float(slopes[1]) / slope,
-        parts={name: float(value) for name, value in zip(terms.names, of_parts, strict=True)},
+        parts={name: float(value) for name, value in zip(terms.names, of_parts, strict=True)} | of_delays,
         nodes={name: float(value) for name, value in zip(names, of_nodes, strict=True)},
         per_farad={name: float(value) for name, value in zip(names, per_farad, strict=True)},
     )

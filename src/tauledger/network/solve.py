@@ -13,14 +13,16 @@ from msgspec import Struct
 from numpy.typing import NDArray
 
 from tauledger.errors import NetworkError
-from tauledger.network.assemble import Network, Triplets
+from tauledger.network.admittance import DENSE_LIMIT as DENSE_LIMIT
+from tauledger.network.admittance import admittance as admittance
+from tauledger.network.admittance import coordinates, slope_moment
+from tauledger.network.admittance import times as times
+from tauledger.network.assemble import Network
 
 if TYPE_CHECKING:
     from collections.abc import Callable
 
     from scipy.sparse.linalg import SuperLU
-
-DENSE_LIMIT = 150
 
 Real = NDArray[np.float64]
 Complex = NDArray[np.complex128]
@@ -69,31 +71,14 @@ def on_axis(frequency_hz: Real | float) -> Complex:
     return s
 
 
-def admittance(network: Network, s: Complex) -> Complex:
-    """Give Y(s) = G + s·C dense, (k, n, n), for s (k,)."""
-    g = network.conductance.dense(network.size)
-    c = network.capacitance.dense(network.size)
-    return g + s[:, None, None] * c
-
-
-def times(matrix: Triplets, x: Complex) -> Complex:
-    """Give the matrix times every row of x (k, n), as (k, n)."""
-    if x.shape[1] <= DENSE_LIMIT:
-        return np.asarray(x @ matrix.dense(x.shape[1]).T, dtype=np.complex128)
-    product = np.zeros_like(x)
-    np.add.at(product.T, matrix.row, (x[:, matrix.column] * matrix.value).T)
-    return product
-
-
 def log_slope(network: Network, solution: Solution) -> Complex:
-    """Give d ln H / d ln s = −λᵀ(sC)x / H at every s (k,).
+    """Give d ln H / d ln s = −λᵀ(s·dY/ds)x / H at every s (k,).
 
     On the axis its real part is d ln|H| / d ln f, and its imaginary part d arg H / d ln f in radian.
     Source: adjoint sensitivity, Director and Rohrer, "The generalized adjoint network and network sensitivities",
     IEEE Trans. Circuit Theory CT-16(3), 1969.
     """
-    moment: Complex = np.sum(solution.adjoint * times(network.capacitance, solution.x), axis=1)
-    return np.asarray(-solution.s * moment / solution.response, dtype=np.complex128)
+    return np.asarray(-solution.s * slope_moment(network, solution) / solution.response, dtype=np.complex128)
 
 
 def _output(network: Network, x: Complex) -> Complex:
@@ -128,9 +113,8 @@ def _factor(network: Network, s: complex) -> SuperLU[np.complex128]:
     from scipy.sparse.linalg import splu
 
     n = network.size
-    g, c = network.conductance, network.capacitance
-    at = (np.concatenate([g.row, c.row]), np.concatenate([g.column, c.column]))
+    row, column, value = coordinates(network, s)
     try:
-        return splu(csc_array((np.concatenate([g.value, s * c.value]), at), shape=(n, n)))
+        return splu(csc_array((value, (row, column)), shape=(n, n)))
     except RuntimeError as error:
         raise NetworkError("the small-signal network has no unique solution") from error

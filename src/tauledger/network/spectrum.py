@@ -8,10 +8,12 @@ others.
 from __future__ import annotations
 
 import numpy as np
+from msgspec.structs import replace
 
 from tauledger.errors import NetworkError
+from tauledger.network.admittance import slope_moment
 from tauledger.network.assemble import Network
-from tauledger.network.solve import Complex, Real, log_slope, solve, times
+from tauledger.network.solve import Complex, Real, log_slope, solve
 
 # Beyond 1e15 Hz only rounding of the infinite natural frequencies is found.
 HIGHEST_RAD_S = 2.0 * np.pi * 1e15
@@ -45,10 +47,11 @@ def zero_frequencies(network: Network, poles: Complex) -> Complex:
     They are the natural frequencies of the bordered pencil [Y −b; eᵀ 0] (output nulled, drive free). That pencil is
     defective at infinity and at the origin, where rounding scatters its values; so the zeros at the origin are counted
     by the slope of H, and elsewhere a value counts only where H really vanishes. A zero that lies a million times below
-    the lowest pole counts as one at the origin. `poles` (rad/s) sets the range.
+    the lowest pole counts as one at the origin. `poles` (rad/s) sets the range. Delays are left out, as in the poles.
     Raises NetworkError where the pencil is singular at every s: no signal reaches the output.
     Source: Rosenbrock, "State-space and multivariable theory", 1970 (system matrix).
     """
+    network = replace(network, delayed=())
     finite = np.abs(poles[np.abs(poles) > 0.0])
     if not len(finite):
         return np.zeros(0, dtype=complex)
@@ -74,7 +77,7 @@ def _vanishing(network: Network, s: Complex, poles: Complex) -> Complex:
     asked = np.flatnonzero(~on_a_pole)
     if len(asked):
         at = solve(network, s[asked])
-        derivative = np.sum(at.adjoint * times(network.capacitance, at.x), axis=1)
+        derivative = slope_moment(network, at)
         kept[asked] = np.abs(at.response) <= NEWTON_STEP * np.abs(at.s * derivative)
     remaining: Complex = s[kept]
     return remaining

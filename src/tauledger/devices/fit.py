@@ -1,0 +1,159 @@
+"""From one instance measured alone to its matrices: G + s·C over its terminals and as many inner states as it has.
+
+Every terminal was driven in turn and the inner nodes' voltages recorded. What the inner nodes do beyond their rest at
+the lowest frequency spans a few states z only (nodes that always move together are one state, and so no pole is made
+up). In x = (terminal voltages, z) every row is a real relation (g + jω·c)·x = i at all frequencies: least squares give
+the rows of the terminals, i being their currents, and the null space gives those of the states, i = 0. Without inner
+states G and C are the real and the imaginary part of Y itself.
+
+Rows of states are known up to a mixing among each other: response and poles are right, single entries mean nothing.
+
+Sources: Golub and Van Loan, "Matrix computations", 4th ed., 2013, sections 5.3 and 2.4 (least squares, singular
+values); Ho and Kalman, "Effective construction of linear state-variable models from input/output functions",
+Regelungstechnik 14, 1966 (the rank of the data is the number of states).
+"""
+
+from __future__ import annotations
+
+import numpy as np
+from msgspec import Struct
+from numpy.typing import NDArray
+
+from tauledger.errors import EngineError
+from tauledger.solution import Samples
+
+Real = NDArray[np.float64]
+Complex = NDArray[np.complex128]
+
+# ngspice's own rounding of an inner node's voltage; a state that moves less is none.
+AT_REST = 1e-9
+SAME_STATE = 1e-9
+# Rows of states beyond this are weighted down: there ω·C alone is left of them.
+HIGH_HZ = 1e10
+STATE_SIEMENS = 1e-3
+# Error against the frequencies that the check leaves out, relative to the largest entry of Y there.
+ACCEPTED = 1e-8
+
+START_HZ, STOP_HZ, PER_DECADE = 1.0, 1e12, 6
+
+
+class Fit(Struct, frozen=True):
+    """G and C of one instance, (n, n), n = terminals and then states; error: what the check found.
+
+    error: largest |ΔY| / largest |Y| at the frequencies that a fit on every second one leaves out.
+    """
+
+    terminals: int
+    conductance: Real
+    capacitance: Real
+    error: float
+
+    @property
+    def states(self) -> int:
+        """How many inner states there are."""
+        return len(self.conductance) - self.terminals
+
+    def admittance(self, frequency_hz: Real) -> Complex:
+        """Give Y at the terminals at every frequency (k,) in Hz, (k, n_terminals, n_terminals), S."""
+        n = self.terminals
+        y = self.conductance + 2j * np.pi * np.asarray(frequency_hz)[:, None, None] * self.capacitance
+        inner = np.linalg.solve(y[:, n:, n:], y[:, n:, :n])
+        return np.asarray(y[:, :n, :n] - y[:, :n, n:] @ inner, dtype=np.complex128)
+
+    def at_rest(self) -> tuple[Real, Real]:
+        """Give the terminals' Y = G₀ + s·C₀ + … near s = 0: G₀ in S and C₀ in F, (n_terminals, n_terminals)."""
+        g, c, n = self.conductance, self.capacitance, self.terminals
+        down = np.linalg.solve(g[n:, n:], g[n:, :n])
+        back = np.linalg.solve(g[n:, n:].T, g[:n, n:].T).T
+        g0 = g[:n, :n] - g[:n, n:] @ down
+        c0 = c[:n, :n] - c[:n, n:] @ down - back @ c[n:, :n] + back @ c[n:, n:] @ down
+        return np.asarray(g0, dtype=float), np.asarray(c0, dtype=float)
+
+
+def frequencies() -> tuple[float, ...]:
+    """Give the frequencies in Hz at which an instance is measured for a fit."""
+    count = round(PER_DECADE * np.log10(STOP_HZ / START_HZ)) + 1
+    return tuple(float(START_HZ * 10.0 ** (k / PER_DECADE)) for k in range(count))
+
+
+def fit(samples: Samples) -> Fit:
+    """Fit G + s·C to what one instance answered, and check it at the frequencies that a second fit leaves out.
+
+    Raises EngineError where no such matrices describe it: delays, noise, or lines inside.
+    """
+    y = samples.admittance
+    z = states(samples)
+    frequency = samples.frequency_hz
+    every, half = np.arange(len(frequency)), np.arange(0, len(frequency), 2)
+    left_out = every[1::2]
+    checked = _fit(frequency[half], y[half], z[half])
+    error = np.abs(checked.admittance(frequency[left_out]) - y[left_out]).max() / np.abs(y[left_out]).max()
+    whole = _fit(frequency, y, z)
+    own = np.abs(whole.admittance(frequency) - y).max(axis=(1, 2)) / np.abs(y).max(axis=(1, 2)).clip(min=1e-30)
+    worst = max(float(error), float(own.max()))
+    if not worst <= ACCEPTED:
+        raise EngineError(
+            f"{samples.element} cannot be rebuilt: no conductances and capacitances describe what ngspice says of it "
+            f"(error {worst:.1e})",
+            "a delay, a line or a frequency-dependent option of its model may be the reason",
+        )
+    return Fit(whole.terminals, whole.conductance, whole.capacitance, worst)
+
+
+def states(samples: Samples) -> Complex:
+    """Give the inner states that the instance has, from the moves of its inner nodes: (n_freq, n_states, n_terminals).
+
+    Zero at the lowest frequency, each scaled to about 1.
+    """
+    v = samples.inner_gain
+    moves = v - v[:1].real
+    reach = np.abs(moves).max(axis=(0, 2)) if v.shape[1] else np.zeros(0)
+    floor = AT_REST * np.maximum(np.abs(v).max(axis=(0, 2)), 1.0) if v.shape[1] else reach
+    moving = reach > floor
+    if not np.any(moving):
+        return np.zeros((len(v), 0, v.shape[2]), dtype=complex)
+    scaled = moves[:, moving] / reach[moving, None]
+    flat = scaled.transpose(1, 0, 2).reshape(scaled.shape[1], -1)
+    u, size, _ = np.linalg.svd(np.concatenate([flat.real, flat.imag], axis=1), full_matrices=False)
+    kept = size > SAME_STATE * size[0]
+    z = np.einsum("ks,fkt->fst", u[:, kept], scaled)
+    return np.asarray(z / np.abs(z).max(axis=(0, 2))[:, None], dtype=np.complex128)
+
+
+def _fit(frequency_hz: Real, y: Complex, z: Complex) -> Fit:
+    n, k = y.shape[1], z.shape[1]
+    omega = 2.0 * np.pi * frequency_hz
+    terminals = np.broadcast_to(np.eye(n, dtype=complex), (len(y), n, n))
+    # one equation per frequency and driven terminal, (n_freq, n_terminals, n + k)
+    x = np.concatenate([terminals, z], axis=1).transpose(0, 2, 1)
+    equations = np.concatenate([x, 1j * omega[:, None, None] * x], axis=2)
+    rows = [_least_squares(equations, y[:, i, :]) for i in range(n)]
+    if k:
+        weighted, scale = _scaled(equations, 1.0 / (1.0 + frequency_hz / HIGH_HZ))
+        _, _, vt = np.linalg.svd(weighted, full_matrices=False)
+        rows += list(vt[-k:] / scale)
+    both = np.array(rows)
+    g, c = both[:, : n + k], both[:, n + k :]
+    if k:
+        # any mixing of the states' rows is as good: the one with G = 1 mS on the diagonal is well conditioned
+        mix = STATE_SIEMENS * np.linalg.inv(g[n:, n:])
+        g[n:], c[n:] = mix @ g[n:], mix @ c[n:]
+    return Fit(n, g, c, 0.0)
+
+
+def _least_squares(equations: Complex, current: Complex) -> Real:
+    """Give (g, c) of one terminal's row; every frequency counts alike, relative to its own largest current."""
+    weight = 1.0 / np.abs(current).max(axis=1).clip(min=1e-30)
+    weighted, scale = _scaled(equations, weight)
+    right = (current * weight[:, None]).reshape(-1)
+    found = np.linalg.lstsq(weighted, np.concatenate([right.real, right.imag]), rcond=1e-15)[0]
+    return np.asarray(found / scale, dtype=float)
+
+
+def _scaled(equations: Complex, weight: Real) -> tuple[Real, Real]:
+    """Give the equations weighted, real parts above imaginary ones, with columns of norm 1, and those norms."""
+    flat = (equations * weight[:, None, None]).reshape(-1, equations.shape[2])
+    real = np.concatenate([flat.real, flat.imag])
+    scale = np.linalg.norm(real, axis=0)
+    scale[scale == 0.0] = 1.0
+    return real / scale, scale
