@@ -292,7 +292,11 @@ class ZeroFacts(Struct, frozen=True):
 
 
 class Stage(Struct, frozen=True):
-    """One node that all signal crosses, in signal order, with the gain from the one before it."""
+    """One node that all signal crosses, in signal order, with the gain from the one before it.
+
+    around: what its transistor does with others, and feedback around it, in words. why: the reason where hand and exact
+    gain differ by more than 2 %. image: in a balanced circuit the same node of the other half.
+    """
 
     node: str
     role: str
@@ -300,6 +304,9 @@ class Stage(Struct, frozen=True):
     gain_hand: float | None
     gain_exact: float | None
     elements: tuple[str, ...]
+    around: tuple[str, ...] = ()
+    why: str = ""
+    image: str = ""
 
 
 class Figure(Struct, frozen=True):

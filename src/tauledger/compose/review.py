@@ -68,7 +68,17 @@ def compose(numbers: Numbers, explanation: Explanation, *, netlist: Netlist | No
         poles=pole_facts(numbers, explanation),
         zeros=zero_facts(numbers),
         stages=tuple(
-            Stage(row.node, row.role, row.owner, row.gain_hand, row.gain_exact, row.elements)
+            Stage(
+                row.node,
+                row.role,
+                row.owner,
+                row.gain_hand,
+                row.gain_exact,
+                row.elements,
+                row.around,
+                row.why,
+                row.image,
+            )
             for row in (hand.stages if hand else ())
         ),
         devices=device_facts(numbers),

@@ -19,6 +19,9 @@ from tauledger.network.assemble import Network
 
 INTERNAL = ("g_pi", "g_o", "g_mu")
 WITHOUT_SIGNAL = ("substrate", "body")
+CONTROL_WORDS = ("base", "gate", "input")
+COMMON_WORDS = ("emitter", "source", "common terminal")
+OUTPUT_WORDS = ("collector", "drain", "output")
 LONE_WORDS = ("input", "common terminal", "output")
 
 
@@ -102,7 +105,6 @@ def read_cells(
     for device in with_words.values():
         cell = device.cell
         assert cell is not None
-        word = {terminal.inner: terminal.word for terminal in device.terminals if terminal.word not in WITHOUT_SIGNAL}
         control, common, output = (at.get(node, GROUND) for node in (cell.control, cell.common, cell.output))
         cells.append(
             Cell(
@@ -116,9 +118,9 @@ def read_cells(
                 body=None if cell.body is None else at.get(cell.body, GROUND),
                 g_mb=cell.g_mb,
                 words=(
-                    word.get(cell.control, "control"),
-                    word.get(cell.common, "common"),
-                    word.get(cell.output, "output"),
+                    _word(device, cell.control, CONTROL_WORDS, "control"),
+                    _word(device, cell.common, COMMON_WORDS, "common"),
+                    _word(device, cell.output, OUTPUT_WORDS, "output"),
                 ),
             )
         )
@@ -136,6 +138,12 @@ def read_cells(
         used.update(part.name for part in (*r_pi, *r_o))
         cells.append(replace(found, r_pi=_parallel_ohm(r_pi), r_o=_parallel_ohm(r_o)))
     return tuple(cells), used
+
+
+def _word(device: Device, node: str, usual: tuple[str, ...], else_word: str) -> str:
+    """Give the word of the terminal at a node, the usual one where several are joined there."""
+    words = [t.word for t in device.terminals if t.inner == node and t.word not in WITHOUT_SIGNAL]
+    return next((word for word in words if word in usual), words[0] if words else else_word)
 
 
 def _lone_cell(part: Part, nodes: tuple[str, ...]) -> Cell | None:

@@ -122,7 +122,11 @@ class LowerRow(Struct, frozen=True):
 
 
 class StageRow(Struct, frozen=True):
-    """One node that all signal crosses, in signal order, with hand and exact gain from the one before."""
+    """One node that all signal crosses, in signal order, with hand and exact gain from the one before.
+
+    around: what the stage's transistor does with others, and feedback around it. why: the reason where hand and exact
+    gain differ by more than 2 %. image: the same node of the other half, where half circuits are analysed.
+    """
 
     node: str
     title: str
@@ -131,6 +135,9 @@ class StageRow(Struct, frozen=True):
     gain_hand: float | None
     gain_exact: float | None
     elements: tuple[str, ...]
+    around: tuple[str, ...] = ()
+    why: str = ""
+    image: str = ""
 
 
 class StepEstimate(Struct, frozen=True):

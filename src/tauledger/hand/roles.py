@@ -37,9 +37,15 @@ def role_of(circuit: EquivalentCircuit, cell: Cell) -> str:
         return into_common
     if left_at == cell.common:
         return follower
-    if _control_node(circuit, cell) in {_diode_node(circuit, other) for other in circuit.cells}:
+    driver = _control_node(circuit, cell)
+    if driver != GROUND and driver in {_diode_node(circuit, other) for other in circuit.cells if other is not cell}:
         return "current mirror output"
     return degenerated if abs(v_common) > FOLLOWS * abs(v_control) else shared
+
+
+def follower_of(cell: Cell) -> str:
+    """Give the word for a follower made of this kind of transistor."""
+    return ROLES.get(cell.words[0], ROLES["input"])[3]
 
 
 def leaves_at(circuit: EquivalentCircuit, cell: Cell) -> str | None:
@@ -57,7 +63,8 @@ def leaves_at(circuit: EquivalentCircuit, cell: Cell) -> str | None:
 def _diode_node(circuit: EquivalentCircuit, cell: Cell) -> str | None:
     """Give the node at which a cell's control is its own output, series resistances aside."""
     if cell.diode_connected:
-        return cell.control
+        # both terminals at AC ground: a common base whose collector is a supply
+        return None if cell.control == GROUND else cell.control
     joint = diode_joint(circuit, circuit.cells.index(cell))
     return None if joint is None else joint.node
 

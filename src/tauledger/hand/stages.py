@@ -5,7 +5,11 @@ from __future__ import annotations
 import math
 from functools import cmp_to_key
 
+import numpy as np
+
+from tauledger.circuit import GROUND
 from tauledger.devices.family import Device
+from tauledger.hand.arrangements import arrangement, bootstrapped, follows_as_one
 from tauledger.hand.elements import Cell
 from tauledger.hand.equivalent import EquivalentCircuit, upper_circuit
 from tauledger.hand.estimate import StageRow
@@ -13,11 +17,12 @@ from tauledger.hand.looking_in import looking_in
 from tauledger.hand.miller import hand_gain
 from tauledger.hand.mirror import find_mirror, half_circuit, same_size
 from tauledger.hand.nodes import Group, crossing, groups, node_name
-from tauledger.hand.roles import leaves_at, role_of
+from tauledger.hand.roles import follower_of, leaves_at, role_of
 from tauledger.network.bands import Bands
 
 CROSSED_BY_ALL = (0.9, 1.1)
 PART_OF_A_STAGE = 0.001
+WORTH_A_REASON = 0.02
 
 
 def stage_rows(bands: Bands, devices: tuple[Device, ...]) -> tuple[StageRow, ...]:
@@ -40,6 +45,7 @@ def stage_rows(bands: Bands, devices: tuple[Device, ...]) -> tuple[StageRow, ...
 
     ordered = sorted(crossed, key=cmp_to_key(order))
     rows: list[StageRow] = []
+    earlier: list[Cell] = []
     before: str | None = None
     for group in ordered:
         node = group.nodes[0]
@@ -49,17 +55,25 @@ def stage_rows(bands: Bands, devices: tuple[Device, ...]) -> tuple[StageRow, ...
             exact = _ratio(circuit, before, node)
             by_hand = hand_gain(circuit, before, node).value
         cell = _source_cell(circuit, group, before)
+        around = () if cell is None else arrangement(circuit, cell, node, before, earlier)
+        role = "passive" if cell is None else role_of(circuit, cell)
+        if cell is not None and follows_as_one(around):
+            role = follower_of(cell)
         rows.append(
             StageRow(
                 node=group.name,
                 title=group.title,
-                role=role_of(circuit, cell) if cell is not None else "passive",
+                role=role,
                 owner=cell.owner if cell is not None else "",
                 gain_hand=by_hand,
                 gain_exact=exact,
                 elements=_elements(circuit, node),
+                around=around,
+                why=_why(circuit, before, node, by_hand, exact),
+                image="" if mirror is None else node_name(whole, mirror.image[node]),
             )
         )
+        earlier += [cell] if cell is not None else []
         before = node
     return tuple(rows)
 
@@ -91,6 +105,48 @@ def _from_source(bands: Bands, circuit: EquivalentCircuit, node: str) -> tuple[f
     return float((circuit.injected[k] * seen / amplitude).real) or None, exact
 
 
+def _why(circuit: EquivalentCircuit, before: str | None, node: str, hand: float | None, exact: float | None) -> str:
+    """Name what brings signal to a node beside the node before, where hand and exact gain differ by more than 2 %.
+
+    Hand drives the node before alone: every other node then moves by v' = K·v(before). The element that carries the
+    largest current more than that, with the true voltages, is the reason.
+    """
+    if hand is None or exact is None or abs(hand - exact) <= WORTH_A_REASON * abs(exact):
+        return ""
+    if before is None:
+        return "looking in by hand is not exact there"
+    k = circuit.row[before]
+    missed = circuit.voltage - circuit.voltage[k] * np.array([circuit.gain(before, other) for other in circuit.nodes])
+    missed[circuit.row[node]] = 0.0
+
+    def at(end: str | None) -> complex:
+        return 0j if end is None or end == GROUND else complex(missed[circuit.row[end]])
+
+    carried: dict[str, float] = {}
+    for r in circuit.resistors_at.get(node, ()):
+        resistor = circuit.resistors[r]
+        carried[resistor.name] = abs(at(resistor.other(node))) / resistor.ohm
+    for c in circuit.cells_at.get(node, ()):
+        cell = circuit.cells[c]
+        drawn = cell.gm * (at(cell.control) - at(cell.common)) + cell.g_mb * (at(cell.body) - at(cell.common))
+        drawn += (at(cell.output) - at(cell.common)) / cell.r_o
+        entering = (at(cell.control) - at(cell.common)) / cell.r_pi
+        total = sum(
+            sign * current
+            for end, sign, current in (
+                (cell.output, 1.0, drawn),
+                (cell.common, -1.0, drawn + entering),
+                (cell.control, 1.0, entering),
+            )
+            if end == node
+        )
+        carried[cell.owner] = abs(total)
+    name = max(carried, key=lambda one: carried[one], default="")
+    if not name or not carried[name]:
+        return "the gain was solved: no chain of hand gains fits"
+    return f"{name} brings signal to {node_name(circuit, node)} as well, past {node_name(circuit, before)}"
+
+
 def _source_cell(circuit: EquivalentCircuit, group: Group, before: str | None) -> Cell | None:
     """Find the cell that brings the signal to a row: it leaves there, and enters at the row before if one does."""
     at = dict.fromkeys(k for node in group.nodes for k in circuit.cells_at.get(node, ()))
@@ -107,5 +163,10 @@ def _elements(circuit: EquivalentCircuit, node: str) -> tuple[str, ...]:
     """Name the resistors and cells at a node that carry more than 0.1 % of its conductance."""
     least = PART_OF_A_STAGE / circuit.z(node, node)
     resistors = [circuit.resistors[k] for k in circuit.resistors_at.get(node, ())]
+    named = [
+        f"{r.name} (bootstrapped)" if bootstrapped(circuit, node, r.other(node)) else r.name
+        for r in resistors
+        if 1.0 / r.ohm >= least
+    ]
     cells = [circuit.cells[k].owner for k in circuit.cells_at.get(node, ())]
-    return (*dict.fromkeys([r.name for r in resistors if 1.0 / r.ohm >= least] + cells),)
+    return (*dict.fromkeys(named + cells),)

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 
-from tauledger.record import DeviceFacts, DriveFacts, EdgeFacts, MidbandFacts, OutputFacts, Review
+from tauledger.record import DeviceFacts, DriveFacts, EdgeFacts, MidbandFacts, OutputFacts, Review, Stage
 from tauledger.report.layout import STRONG, Block, Prose, Row, Section, Table
 from tauledger.report.wording import NO_NUMBER, move, nominal, number, part_unit, symbol
 
@@ -62,8 +62,11 @@ def operating_points(review: Review, *, verbose: bool = False) -> Section:
                 for device in devices
             )
             blocks.append(Table("l" + "r" * (len(head) - 1), head, rows))
-    if review.stages and (len(review.stages) >= _STAGES_WORTH_TELLING or verbose):
+    halves = any(stage.image for stage in review.stages)
+    if review.stages and (len(review.stages) >= _STAGES_WORTH_TELLING or verbose or halves):
         blocks.append(Prose(_stages(review), lead="Stages  "))
+    if verbose:
+        blocks.extend(Prose(_stage(stage), lead="  ", hang=4) for stage in review.stages)
     return Section(tuple(blocks))
 
 
@@ -76,7 +79,18 @@ def _stages(review: Review) -> str:
         if exact is not None and hand is not None and abs(hand - exact) > 0.01 * abs(exact):
             gain += f" (hand {number(hand, '')})"
         told.append(f"{stage.node} {gain}")
-    return " → ".join(told)
+    half = ", in each half" if any(stage.image for stage in review.stages) else ""
+    return " → ".join(told) + half
+
+
+def _stage(stage: Stage) -> str:
+    """Say what one stage is, out of what, and why its gain by hand is not the exact one where it is not."""
+    of = f" {stage.owner}" if stage.owner else ""
+    gains = f"{number(stage.gain_hand, '')} by hand, {number(stage.gain_exact, '')} exact"
+    around = f"; {', '.join(stage.around)}" if stage.around else ""
+    why = f"; {stage.why}" if stage.why else ""
+    there = f" ({stage.image} alike)" if stage.image else ""
+    return f"{stage.node}{there}: {stage.role}{of}, gain {gains}; with {', '.join(stage.elements)}{around}{why}"
 
 
 def _drive(drive: DriveFacts, *, alone: bool) -> str:
