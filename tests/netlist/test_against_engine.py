@@ -7,8 +7,10 @@ from pathlib import Path
 import pytest
 
 from netlist_boards import BOARDS, MODEL, STAGE
+from netlist_elements import ELEMENTS
 from netlist_judge import answers, judged
 from tauledger.netlist import elaborate, read
+from tauledger.netlist.writer import flat_netlist
 
 # Both runs are tight (reltol 1e-6); the same numbers in another order of cards come out within this.
 SAME = 1e-6
@@ -19,6 +21,22 @@ def test_our_circuit_has_the_same_operating_point_and_ac_as_the_original_file(na
     path = tmp_path / "board.cir"
     path.write_text(BOARDS[name], encoding="utf-8")
     assert judged(path, elaborate(read(path), output="in")) <= SAME
+
+
+@pytest.mark.parametrize("name", ELEMENTS)
+def test_every_letter_has_the_same_operating_point_and_ac_as_in_the_original_file(name: str, tmp_path: Path) -> None:
+    path = tmp_path / "board.cir"
+    path.write_text(ELEMENTS[name], encoding="utf-8")
+    assert judged(path, elaborate(read(path), purpose="reading")) <= SAME
+
+
+@pytest.mark.parametrize("name", [*BOARDS, *ELEMENTS])
+def test_the_flat_deck_is_read_back_to_itself(name: str, tmp_path: Path) -> None:
+    path = tmp_path / "board.cir"
+    path.write_text({**BOARDS, **ELEMENTS}[name], encoding="utf-8")
+    flat = flat_netlist(elaborate(read(path), purpose="reading"))
+    path.write_text(flat, encoding="utf-8")
+    assert flat_netlist(elaborate(read(path), purpose="reading")) == flat
 
 
 def test_line_ends_byte_order_mark_tabs_and_latin_1_do_not_matter(tmp_path: Path) -> None:

@@ -33,7 +33,7 @@ u u2 uramp ddt eq0 ne0 gt0 lt0 ge0 le0"""
 FUNCTIONS: dict[str, int] = dict.fromkeys(_ONE.split(), 1)
 FUNCTIONS |= {"min": 2, "max": 2, "pow": 2, "pwr": 2, "ternary_fcn": 3, "pwl": -1}
 
-_SAME = {"**": "^", "<>": "!=", "negative": "-", "positive": "+", "?": "?:"}
+_SAME = {"**": "^", "<>": "!=", "negative": "-", "?": "?:"}
 
 
 def parse_behaviour(site: Site, text: str, at: int, inner: int) -> Behaviour:
@@ -105,6 +105,10 @@ def formula_of(
                 return circuit.Current(source(names[0]))
             case Probe(names=names):
                 return circuit.Voltage(node(names[0]), node(names[1]) if len(names) > 1 else 0)
+            case Operation(operator="positive", operands=(inner,)):
+                return convert(inner)
+            case Operation(operator="negative", operands=(Number(value=value),)):
+                return circuit.Number(-value)
             case Operation(operator=sign, operands=operands):
                 return circuit.Apply(_SAME.get(sign, sign), tuple(convert(part) for part in operands))
             case Call(function=name, arguments=arguments):

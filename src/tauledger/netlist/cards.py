@@ -37,9 +37,8 @@ _UNCLOSED = {
 
 # What makes a formula a behavioural one: it can only be worked out during the run.
 _OF_THE_RUN = re.compile(r"(?<![\w.])(?:[vi]\s*\(|(?:temper|hertz|time)\b)", re.IGNORECASE)
-# The keywords behind which a behavioural expression stands, by letter; the second set only where it is one.
+# The keywords behind which a behavioural expression stands, in braces, quotes or bare, by letter.
 _BEHAVIOURAL = {"B": "v|i", "E": "vol|value", "G": "cur|value", "C": "q"}
-_PERHAPS = {"R": "r", "C": "c", "L": "l"}
 _PIECE = re.compile(r"""'[^']*'|"[^"]*"|\{[^{}]*\}|[()]|(?<![\w.])([A-Za-z]+\w*)\s*(?:=(?!=)\s*|(?=[{'"]))""")
 _BEHIND = re.compile(r"""'[^']*'|"[^"]*"|\{[^{}]*\}|[()]|\s(?:tc1|tc2|m|temp|dtemp|ic)\s*=(?!=)""", re.IGNORECASE)
 
@@ -73,7 +72,7 @@ def parse_element(site: Site) -> tuple[Item, ...]:
 
 
 def _region(text: str, letter: str) -> _Region | None:
-    sure, perhaps = _BEHAVIOURAL.get(letter, "").split("|"), _PERHAPS.get(letter, "")
+    sure = _BEHAVIOURAL.get(letter, "").split("|")
     depth = 0
     for piece in _PIECE.finditer(text):
         keyword = piece.group(1)
@@ -91,10 +90,6 @@ def _region(text: str, letter: str) -> _Region | None:
             return _Region(keyword, piece.start(), start, end + skip + rest[skip : skip + 1].count("="))
         if word in sure and (letter != "B" or "=" in piece.group()):
             return _Region(keyword, piece.start(), piece.end(), _end(text, piece.end()))
-        if word == perhaps:
-            end = _end(text, piece.end())
-            if _OF_THE_RUN.search(text, piece.end(), end):
-                return _Region(keyword, piece.start(), piece.end(), end)
     return None
 
 

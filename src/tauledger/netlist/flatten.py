@@ -112,7 +112,7 @@ def _element(
         parameters=_own_value(draft, name, part, letter),
         card=number,
         path=around.path,
-        references=tuple(_reference(around, word) for word in part.references),
+        references=tuple(around.prefix + word.text for word in part.references),
         polynomial=part.polynomial,
         formula=_formula(netlist, draft, around, part, site),
         quantity=part.quantity,
@@ -197,14 +197,6 @@ def _own_value(draft: Draft, name: str, part: ElementCard, letter: str) -> tuple
     return tuple((word, m * _changed(draft, name, value) if word == own else value) for word, value in part.parameters)
 
 
-def _reference(around: Surroundings, word: Word) -> str:
-    """Give the flat name of another element: one beside it; from the netlist itself also v.x1.v1, as ngspice has it."""
-    text = word.text
-    if not around.prefix and text[1:2] == "." and "." in text[2:]:
-        return text[2:]
-    return around.prefix + text
-
-
 def _formula(
     netlist: Netlist, draft: Draft, around: Surroundings, part: ElementCard, site: Site
 ) -> circuit.Formula | None:
@@ -221,7 +213,7 @@ def _formula(
         parameter=number,
         known=lambda: list(known_names(around.scope)),
         node=lambda text: _node(netlist, draft, around, Word(text, at)),
-        source=lambda text: _reference(around, Word(text, at)),
+        source=lambda text: around.prefix + text,
     )
     if part.table:
         return circuit.Apply("table", (found, *map(circuit.Number, part.table)))

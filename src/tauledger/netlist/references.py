@@ -29,7 +29,7 @@ def check_references(netlist: Netlist, draft: Draft, faults: list[Diagnostic]) -
         resolved: list[str] = []
         for name in element.references:
             _resolve(netlist, draft, element, name, known, words, resolved, faults)
-        formula = None if element.formula is None else _renamed(element.formula, measured)
+        formula = None if element.formula is None else _renamed(element.formula, measured, element.path)
         for name in _currents(formula):
             _resolve(netlist, draft, element, name, measured, "element with a current", [], faults)
         if len(resolved) == len(element.references):
@@ -46,7 +46,7 @@ def _resolve(
     resolved: list[str],
     faults: list[Diagnostic],
 ) -> None:
-    found = known.get(fold(name))
+    found = _found(name, known, element.path)
     if found is not None:
         resolved.append(found)
         return
@@ -67,12 +67,20 @@ def _at(text: str, name: str) -> int:
     return 0 if found < 0 else found
 
 
-def _renamed(formula: Formula, names: Mapping[str, str]) -> Formula:
+def _found(name: str, known: Mapping[str, str], path: int) -> str | None:
+    """Give an element by its flat name; from the netlist itself one inside an instance is v.x1.v1 as well."""
+    found = known.get(fold(name))
+    if found is None and path == 0 and name[1:2] == ".":
+        return known.get(fold(name[2:]))
+    return found
+
+
+def _renamed(formula: Formula, names: Mapping[str, str], path: int) -> Formula:
     match formula:
         case Current(source=source):
-            return Current(names.get(fold(source), source))
+            return Current(_found(source, names, path) or source)
         case Apply(function=function, arguments=arguments):
-            return Apply(function, tuple(_renamed(part, names) for part in arguments))
+            return Apply(function, tuple(_renamed(part, names, path) for part in arguments))
     return formula
 
 

@@ -110,7 +110,9 @@ def number_of(site: Site, value: Value, scope: Scope) -> float:
             hint = f"write the point: {_pointed(head, tail)} ({head} is what ngspice would read)"
             raise site.fault(value, f"{value.text!r} has digits behind its suffix", hint)
         if decimal.tail:
-            raise site.fault(value, f"{value.text!r} is not a number")
+            formula = decimal.tail[0] in "*/+-^%"
+            hint = "a formula stands in braces: {..}" if formula else ""
+            raise site.fault(value, f"{value.text!r} is not a number", hint)
         if abs(decimal.value) == float("inf"):
             raise site.fault(value, f"{value.text!r} is beyond the range of numbers")
         return decimal.value
