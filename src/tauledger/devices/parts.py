@@ -9,7 +9,8 @@ value·v(control) as it was `delay_s` before. A voltage gain (SPICE E) has the s
 v(out_plus) - v(out_minus) = value·v(control). A current gain (F) and a transresistance (H) have two nodes and refer to
 the voltage source whose branch current i they sense: the first carries value·i, the second forces value·i. A mutual
 inductance has the nodes of two inductances, which it refers to; it adds value·di(second)/dt to the voltage of the
-first, so that a pair of them couples both ways. A voltage source forces v(a) - v(b); its branch
+first, so that a pair of them couples both ways. A block has any nodes and carries
+Σ_j G_ij·v_j + value·Σ_j C_ij·dv_j/dt into itself at its node i. A voltage source forces v(a) - v(b); its branch
 current flows from a through the source to b. A current source pushes its current from a through itself to b.
 """
 
@@ -32,7 +33,10 @@ PartKind = Literal[
     "transresistance",
     "mutual inductance",
     "delayed transconductance",
+    "block",
 ]
+
+Matrix = tuple[tuple[float, ...], ...]
 
 WITH_BRANCH = ("voltage source", "inductance", "voltage gain", "transresistance")
 
@@ -43,7 +47,8 @@ class Part(Struct, frozen=True):
 
     nodes: two names, or four for the controlled kinds. value: S, F, H, S, F; for sources 0; V/V, A/A, ohm, H, S.
     amplitude: complex drive in V or A, of sources only. references: owners of the branches that it senses or couples.
-    delay_s: of a delayed transconductance.
+    delay_s: of a delayed transconductance. conductances, capacitances: G in S and C in F of a block, in the order of
+    its nodes; its value is 1, and a factor on C.
     """
 
     kind: PartKind
@@ -54,6 +59,8 @@ class Part(Struct, frozen=True):
     amplitude: complex = 0.0
     references: tuple[str, ...] = ()
     delay_s: float = 0.0
+    conductances: Matrix = ()
+    capacitances: Matrix = ()
 
     @property
     def name(self) -> str:
@@ -123,6 +130,11 @@ def mutual_inductances(
         Part("mutual inductance", owner, "m_12", ends, henry, references=(first, second)),
         Part("mutual inductance", owner, "m_21", (*ends[2:], *ends[:2]), henry, references=(second, first)),
     )
+
+
+def block(owner: str, nodes: tuple[str, ...], conductances: Matrix, capacitances: Matrix, label: str = "") -> Part:
+    """Matrices G in S and C in F between nodes, inner ones included: what one instance is beside its other parts."""
+    return Part("block", owner, label, nodes, 1.0, conductances=conductances, capacitances=capacitances)
 
 
 def voltage_source(owner: str, a: str, b: str, amplitude: complex = 0.0) -> Part:

@@ -138,7 +138,7 @@ def joined(network: Network, shorted: Collection[str], removed: Collection[str])
     for part in network.parts:
         nodes = tuple(at[node] for node in part.nodes)
         forced = part.kind.endswith("source") and network.amplitude(part) != 0.0
-        idle = nodes[0] == nodes[1] and not forced
+        idle = nodes[0] == nodes[1] and not forced and part.kind != "block"
         if part.name not in gone and not idle:
             parts.append(replace(part, nodes=nodes))
     drive = {part.owner: complex(network.amplitude(part)) for part in parts if part.kind.endswith("source")}

@@ -128,6 +128,9 @@ def assemble(parts: tuple[Part, ...], port: Port, drive: Mapping[str, complex]) 
             case "transconductance" | "transcapacitance" | "delayed transconductance":
                 p, m, cp, cm = rows
                 _stamp(c_rows if part.kind == "transcapacitance" else g_rows, (p, m), (cp, cm), part.value)
+            case "block":
+                _stamp_matrix(g_rows, rows, part.conductances, 1.0)
+                _stamp_matrix(c_rows, rows, part.capacitances, part.value)
             case "current gain":
                 p, m = rows
                 g_rows += [(p, sensed[0], part.value), (m, sensed[0], -part.value)]
@@ -200,6 +203,13 @@ def _stamp(rows: list[tuple[int, int, float]], out: tuple[int, int], control: tu
     for row, row_sign in ((out[0], 1.0), (out[1], -1.0)):
         for column, column_sign in ((control[0], 1.0), (control[1], -1.0)):
             rows.append((row, column, row_sign * column_sign * value))
+
+
+def _stamp_matrix(
+    entries: list[tuple[int, int, float]], rows: list[int], matrix: tuple[tuple[float, ...], ...], factor: float
+) -> None:
+    for row, values in zip(rows, matrix, strict=True):
+        entries += [(row, column, factor * value) for column, value in zip(rows, values, strict=True) if value]
 
 
 def _triplets(rows: list[tuple[int, int, float]]) -> Triplets:

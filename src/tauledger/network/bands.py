@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping
+from collections.abc import Collection, Iterable, Mapping
 from typing import Literal
 
 import numpy as np
@@ -81,7 +81,7 @@ def classify(network: Network, midband: MidBand) -> Bands:
     coupled = _coupled(network)
     class_of: dict[str, BandClass] = {}
     for part in network.parts:
-        if part.kind == "transcapacitance":
+        if part.kind in ("transcapacitance", "block"):
             class_of[part.name] = "open"
         elif part.kind == "mutual inductance" or fold(part.owner) in coupled:
             class_of[part.name] = "tuned"
@@ -132,9 +132,8 @@ def lower_network(network: Network, class_of: Mapping[str, BandClass]) -> Networ
 
     Raises NetworkError where nothing is left at the output.
     """
-    open_capacitor = {"capacitance", "transcapacitance"}
-    kept = [part for part in network.parts if part.kind not in open_capacitor or class_of[part.name] != "open"]
-    return _renamed(network, kept, lower_nodes(network, class_of))
+    opens = {name for name, kind in class_of.items() if kind == "open"}
+    return _renamed(network, _without_charge(network.parts, opens), lower_nodes(network, class_of))
 
 
 def lower_nodes(network: Network, class_of: Mapping[str, BandClass]) -> dict[str, str]:
@@ -149,18 +148,23 @@ def midband_network(network: Network, class_of: Mapping[str, BandClass]) -> Netw
     Capacitors of class "gain" stay. Tuned parts are taken as at DC.
     Raises NetworkError where nothing is left at the output.
     """
-    kept = [
-        part
-        for part in network.parts
-        if (part.kind not in ("capacitance", "transcapacitance") or class_of[part.name] == "gain")
-        and (not _passes(network, part) or class_of[part.name] != "open")
-    ]
+    uncharged = _without_charge(network.parts, {name for name, kind in class_of.items() if kind != "gain"})
+    kept = [part for part in uncharged if not _passes(network, part) or class_of[part.name] != "open"]
     return _renamed(network, kept, midband_nodes(network, class_of))
 
 
 def midband_nodes(network: Network, class_of: Mapping[str, BandClass]) -> dict[str, str]:
     """Give for every node the one that stands for all that short capacitors and inductors join with it."""
     return joined_nodes(network, [part for part in network.parts if _wire(network, part, class_of)])
+
+
+def _without_charge(parts: Iterable[Part], names: Collection[str]) -> list[Part]:
+    """Take out those capacitances and transcapacitances that are named; a block keeps its conductances."""
+    return [
+        replace(part, value=0.0) if part.kind == "block" else part
+        for part in parts
+        if part.kind not in ("capacitance", "transcapacitance") or part.name not in names
+    ]
 
 
 def merged_nodes(network: Network, class_of: Mapping[str, BandClass]) -> dict[str, str]:
@@ -269,7 +273,7 @@ def _gain_error(network: Network, midband: MidBand, class_of: Mapping[str, BandC
     try:
         upper, frequency_hz = upper_network(network, class_of, merged_nodes(network, class_of)), 0.0
         if "gain" in class_of.values():
-            kept = [part for part in upper.parts if class_of.get(part.name, "gain") != "open" or _passes(upper, part)]
+            kept = _without_charge(upper.parts, {name for name, kind in class_of.items() if kind == "open"})
             upper, frequency_hz = assemble(tuple(kept), upper.port, upper.amplitudes), midband.frequency_hz
         gain = abs(response(upper, np.array([frequency_hz]))[0])
     except NetworkError:
@@ -319,7 +323,7 @@ def _renamed(network: Network, parts: list[Part], merged: Mapping[str, str]) -> 
 def _is_empty(network: Network, part: Part, nodes: tuple[str, ...]) -> bool:
     if part.kind in ("capacitance", "transcapacitance") and part.value == 0.0:
         return True
-    if part.kind == "mutual inductance":
+    if part.kind in ("mutual inductance", "block"):
         return False
     # a voltage gain without control still forces 0 V
     loop = nodes[0] == nodes[1] or (len(nodes) == 4 and nodes[2] == nodes[3] and part.kind != "voltage gain")

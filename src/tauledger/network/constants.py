@@ -23,7 +23,7 @@ from tauledger.network.admittance import delay_moments
 from tauledger.network.assemble import Network, incidence
 from tauledger.network.bands import Bands
 from tauledger.network.gain_setting import impedance, impedance_above
-from tauledger.network.reactances import moments, reactances
+from tauledger.network.reactances import by_part, moments, reactances, together
 from tauledger.network.solve import Complex, Real, on_axis, solve, times
 from tauledger.network.spectrum import pole_frequencies
 
@@ -169,10 +169,11 @@ def open_constants(bands: Bands) -> OpenConstants:
     tau: Real = terms.value * np.sum(terms.control * (mid.z @ terms.out), axis=0)
     whole = tau if not s else terms.value * np.sum(terms.control * (mid.whole @ terms.out), axis=0)
     delayed = moments(terms, solution)[0]
+    tau, whole, delayed = together(terms, tau).real, together(terms, whole), together(terms, delayed)
     moment: Real = delayed.real
     total = float(np.sum(np.abs(moment)))
     rows = []
-    for k, part in enumerate(terms.parts):
+    for k, part in enumerate(terms.distinct):
         weight = float((delayed[k] / whole[k]).real) if whole[k] != 0.0 else 0.0
         rows.append(
             OpenConstant(
@@ -218,9 +219,7 @@ def group_delay(network: Network, frequency_hz: float) -> dict[str, float]:
     terms = reactances(network)
     at = solve(network, on_axis(frequency_hz))
     delay = moments(terms, at)[0].real
-    return {name: float(value) for name, value in zip(terms.names, delay, strict=True)} | {
-        name: float(moment[0].real) for name, moment in delay_moments(network, at).items()
-    }
+    return by_part(terms, delay) | {name: float(moment[0].real) for name, moment in delay_moments(network, at).items()}
 
 
 def _group_delay(network: Network, s: complex) -> float:
@@ -231,4 +230,5 @@ def _group_delay(network: Network, s: complex) -> float:
 def _facing(kind: PartKind, value: float, tau: float) -> float:
     if kind == "inductance":
         return value / tau if tau != 0.0 else float("inf")
-    return tau / value
+    # a block's value is a bare factor: what it faces is no single resistance
+    return float("inf") if kind == "block" else tau / value

@@ -17,7 +17,7 @@ from numpy.typing import NDArray
 from tauledger.errors import NetworkError
 from tauledger.network.admittance import all_pass
 from tauledger.network.assemble import Network
-from tauledger.network.reactances import reactances
+from tauledger.network.reactances import by_part, reactances
 from tauledger.network.solve import Complex, admittance
 from tauledger.network.spectrum import pole_frequencies, zero_frequencies
 
@@ -115,7 +115,7 @@ def pole_owners(network: Network, poles: Complex) -> tuple[dict[str, float], ...
     bound = np.sqrt(np.abs(pushed) ** 2 @ np.abs(terms.value)) * np.sqrt(np.abs(seen) ** 2 @ np.abs(terms.value))
     simple = np.abs(whole) > DEFECTIVE * bound
     for k in np.flatnonzero(simple):
-        result[moving[k]] = dict(zip(terms.names, (taken[k] / whole[k]).real.tolist(), strict=True))
+        result[moving[k]] = by_part(terms, (taken[k] / whole[k]).real)
     return tuple(result)
 
 

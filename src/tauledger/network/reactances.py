@@ -1,5 +1,7 @@
 """Every capacitance, inductance and transcapacitance as a rank-one term of C: C = Σ value · out · controlᵀ.
 
+A block has several terms, one per singular value of its C; `by_part` takes them together.
+
 All that a single part does to the network follows from it: its time constant value · controlᵀ Z out, its share
 value · (λᵀ out)(controlᵀ x), the pole it owns.
 """
@@ -13,11 +15,13 @@ from tauledger.devices.parts import Part
 from tauledger.network.assemble import Network, Triplets, incidence
 from tauledger.network.solve import Complex, Real, Solution
 
-REACTIVE = ("capacitance", "inductance", "transcapacitance", "mutual inductance")
+REACTIVE = ("capacitance", "inductance", "transcapacitance", "mutual inductance", "block")
+# Singular values below this are rounding of the largest one.
+NO_RANK = 1e-14
 
 
 class Reactances(Struct, frozen=True):
-    """The reactive parts in the network's order. value: (m,) F or H. out, control: (n, m)."""
+    """The reactive parts in the network's order, a block once per term. value: (m,) F or H. out, control: (n, m)."""
 
     parts: tuple[Part, ...]
     value: Real
@@ -29,17 +33,31 @@ class Reactances(Struct, frozen=True):
         """Part names, (m,)."""
         return tuple(part.name for part in self.parts)
 
+    @property
+    def distinct(self) -> tuple[Part, ...]:
+        """The parts, each once."""
+        return tuple({part.name: part for part in self.parts}.values())
+
 
 def reactances(network: Network) -> Reactances:
     """Give the rank-one terms of C, one per reactive part; an inductance acts on its own branch current.
 
     A mutual inductance acts on the branch of the first inductor by the current of the second.
     """
-    parts = tuple(part for part in network.parts if part.kind in REACTIVE)
+    blocks = {part.name: _terms(network, part) for part in network.parts if part.kind == "block" and part.value}
+    times = {name: len(columns) for name, columns in blocks.items()}
+    parts = tuple(
+        part
+        for part in network.parts
+        if part.kind in REACTIVE
+        for _ in range(times.get(part.name, 0) if part.kind == "block" else 1)
+    )
     out = np.zeros((network.size, len(parts)))
     control = np.zeros_like(out)
     for k, part in enumerate(parts):
-        if part.kind == "inductance":
+        if part.kind == "block":
+            out[:, k], control[:, k] = blocks[part.name].pop(0)
+        elif part.kind == "inductance":
             row = network.branch(part.owner)
             out[row, k], control[row, k] = 1.0, -1.0
         elif part.kind == "mutual inductance":
@@ -49,6 +67,36 @@ def reactances(network: Network) -> Reactances:
             out[:, k] = incidence(network, part.nodes[0], part.nodes[1])
             control[:, k] = incidence(network, part.nodes[-2], part.nodes[-1])
     return Reactances(parts, np.array([part.value for part in parts]), out, control)
+
+
+def together(terms: Reactances, values: Complex | Real) -> Complex:
+    """Add up what belongs to one part, (n_parts,) in the order of `terms.distinct`; values: (m,)."""
+    place = {part.name: k for k, part in enumerate(terms.distinct)}
+    found = np.zeros(len(place), dtype=complex)
+    np.add.at(found, [place[name] for name in terms.names], values)
+    return found
+
+
+def by_part(terms: Reactances, values: Real) -> dict[str, float]:
+    """Add up what belongs to one part, by its name in the network's order; values: (m,)."""
+    return {p.name: float(value) for p, value in zip(terms.distinct, together(terms, values).real, strict=True)}
+
+
+def _terms(network: Network, part: Part) -> list[tuple[Real, Real]]:
+    """Give out and control, (n,) each, of every term of a block's C."""
+    row_of = {node: row for node in part.nodes if (row := network.index(node)) is not None}
+    place = np.zeros((len(row_of), len(part.nodes)))
+    for column, node in enumerate(part.nodes):
+        if node in row_of:
+            place[list(row_of).index(node), column] = 1.0
+    u, size, vt = np.linalg.svd(place @ np.array(part.capacitances) @ place.T)
+    rows = list(row_of.values())
+    found = []
+    for k in range(int(np.sum(size > NO_RANK * size.max(initial=0.0)))):
+        out, control = np.zeros(network.size), np.zeros(network.size)
+        out[rows], control[rows] = np.sqrt(size[k]) * u[:, k], np.sqrt(size[k]) * vt[k]
+        found.append((out, control))
+    return found
 
 
 def moments(terms: Reactances, solution: Solution) -> Complex:

@@ -80,6 +80,11 @@ def each_scaled(network: Network, midband: MidBand, edges: Edges, factor: float)
     gain = np.abs(_each_response(network, terms, np.concatenate([[midband.frequency_hz], frequency]), factor))
     result = {}
     for k, part in enumerate(terms.parts):
+        if part.kind == "block":
+            # several terms at once are no change of rank one
+            if part.name not in result:
+                result[part.name] = edge_frequencies(scaled(network, {part.name: factor}), midband)
+            continue
         level = HALF_POWER * float(gain[0, k])
         changed = scaled(network, {part.name: factor})
         found = EdgeFrequencies(

@@ -20,7 +20,7 @@ from tauledger.network.admittance import delay_moments
 from tauledger.network.assemble import Network
 from tauledger.network.bands import BandClass
 from tauledger.network.midband import MidBand
-from tauledger.network.reactances import moments, reactances
+from tauledger.network.reactances import by_part, moments, reactances
 from tauledger.network.solve import Complex, Real, log_slope, on_axis, solve
 
 
@@ -74,7 +74,7 @@ def find_shares(network: Network, midband: MidBand, edge_hz: float, class_of: Ma
         hz=edge_hz,
         slope=slope,
         defect=float(slopes[1]) / slope,
-        parts={name: float(value) for name, value in zip(terms.names, of_parts, strict=True)} | of_delays,
+        parts=by_part(terms, of_parts) | of_delays,
         nodes={name: float(value) for name, value in zip(names, of_nodes, strict=True)},
         per_farad={name: float(value) for name, value in zip(names, per_farad, strict=True)},
     )
