@@ -10,6 +10,7 @@ from types import TracebackType
 import click
 
 from tauledger import __version__
+from tauledger.commands.methods import methods_command
 from tauledger.commands.review import review_command
 from tauledger.errors import ExitCode, NetlistError, NetworkError, TauledgerError
 
@@ -35,6 +36,7 @@ def command() -> None:
 
 
 command.add_command(review_command)
+command.add_command(methods_command)
 
 
 def _outcome(arguments: list[str] | None) -> int:

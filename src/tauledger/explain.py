@@ -21,7 +21,7 @@ from tauledger.hand.effects import pole_effects
 from tauledger.hand.estimate import HandEstimate
 from tauledger.hand.halves import images
 from tauledger.hand.lower import lower_rows
-from tauledger.hand.methods import methods
+from tauledger.hand.methods import methods, weighted_lower, weighted_upper
 from tauledger.hand.poles import HandPole, hand_poles
 from tauledger.hand.stages import stage_rows
 from tauledger.hand.steps import lower_steps, upper_steps
@@ -84,7 +84,7 @@ def explain(numbers: Numbers) -> Explanation:
     if worked:
         open_rows, short_rows = open_constants(bands), short_constants(bands)
         check((*open_identities(open_rows), *short_identities(short_rows)))
-        hand, upper, lower = _by_hand(numbers)
+        hand, upper, lower = _by_hand(numbers, open_rows)
     evidence = Evidence(
         bands=bands,
         poles=poles,
@@ -141,7 +141,7 @@ def _roots(numbers: Numbers) -> tuple[Complex, Complex]:
     return np.array(both[0], dtype=complex), np.array(both[1], dtype=complex)
 
 
-def _by_hand(numbers: Numbers) -> tuple[HandEstimate, Combined, Combined]:
+def _by_hand(numbers: Numbers, constants: OpenConstants) -> tuple[HandEstimate, Combined, Combined]:
     bands, devices, edges = numbers.bands, numbers.devices, numbers.edges
     high, low = (edge.hz if edge is not None else None for edge in (edges.f_high, edges.f_low))
     nodes, capacitors = signal_nodes(bands, devices), lower_rows(bands, devices)
@@ -163,7 +163,14 @@ def _by_hand(numbers: Numbers) -> tuple[HandEstimate, Combined, Combined]:
             *upper_steps(nodes, upper, full_hz=high, stable=numbers.poles.stable),
             *lower_steps(capacitors, lower, full_hz=low, stable=numbers.poles.stable),
         ),
-        methods=methods(upper, lower, upper_hz=high, lower_hz=low),
+        methods=methods(
+            upper,
+            lower,
+            upper_hz=high,
+            lower_hz=low,
+            upper_weighted_hz=weighted_upper(constants.weighted_sum_s),
+            lower_weighted_hz=weighted_lower(capacitors),
+        ),
         sigma=upper.sigma,
         hand_f_high_hz=upper.lowest,
         hand_f_low_hz=lower.lowest,

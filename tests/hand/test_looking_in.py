@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import pytest
 from hypothesis import given, settings
 
 import boards
@@ -87,8 +86,20 @@ def shunt_feedback(r_f: float) -> EquivalentCircuit:
     )
 
 
-@pytest.mark.parametrize("node", ["b", "c"])
-def test_shunt_feedback_is_one_loop_that_lowers_the_resistance(node: str) -> None:
+def test_at_the_input_the_feedback_resistor_is_taken_by_miller() -> None:
+    """R_F/(1 + gm·(R_C ‖ R_F ‖ r_o)) beside R_S and r_π: exact, for K is driven from the node itself."""
+    worked = into(shunt_feedback(10e3), "b")
+    load = 1 / (1 / 2e3 + 1 / 10e3 + 1 / 80e3)
+    # the resistor carries signal forward too: (1 − K) with K = −(gm − 1/R_F)·load
+    seen = 1 / (1 / 1e3 + 0.04 / 150 + (1 + (0.04 - 1e-4) * load) / 10e3)
+    assert worked.source == "rule"
+    assert worked.rule == "looking in, RF by Miller"
+    assert worked.ohm == near(seen, rel=0.005)
+    assert "RF/(1 − K)" in worked.text
+
+
+def test_shunt_feedback_is_one_loop_that_lowers_the_resistance() -> None:
+    node = "c"
     circuit = shunt_feedback(10e3)
     worked = into(circuit, node)
     assert worked.source == "loop"

@@ -13,7 +13,7 @@ import boards
 from by_algebra import evidence, plain_capacitor, plain_node, roots, signal_nodes
 from tauledger.hand.combine import Combined, combine_lower, combine_upper
 from tauledger.hand.estimate import MethodEstimate
-from tauledger.hand.methods import methods, recommended
+from tauledger.hand.methods import methods, recommended, weighted_lower, weighted_upper
 from tauledger.network.assemble import Network
 
 NONE = np.empty(0, dtype=complex)
@@ -165,3 +165,14 @@ def test_rows_aside_are_in_no_method() -> None:
     both = methods(combined, low, upper_hz=37.28e6, lower_hz=10.0)
     assert {estimate.edge for estimate in both} == {"f_high", "f_low"}
     assert methods(None, None, upper_hz=None, lower_hz=None) == ()
+
+
+def test_the_weighted_sum_of_a_follower_knows_its_zero_and_that_of_decoupling_nothing() -> None:
+    """1/(2π·Σ w·R·C): Σ w·R·C is b1 − a1, so a zero at −a1 takes its part back."""
+    assert weighted_upper(159.155e-9) == pytest.approx(1e6, rel=1e-5)
+    assert weighted_upper(-1e-9) is None
+    found = evidence(boards.bypassed_emitter())
+    low = [row for row in found.capacitors if row.in_path]
+    expected = sum(row.edge_hand_hz - row.zero_hz * row.edge_hand_hz / row.edge_exact_hz for row in low)
+    assert weighted_lower(low) == pytest.approx(expected)
+    assert weighted_lower([]) is None

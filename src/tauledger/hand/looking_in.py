@@ -1,8 +1,8 @@
 """The resistance that a node sees, as worked on paper, checked against the exact value and marked with its source.
 
 On a tree of cells the rules are exact. Elsewhere the result is accepted only within 1 % of the exact driving-point
-resistance; where it is not, one loop is taken out (R0/(1 + T)), then the branch form with the exact node ratios is
-tried, and what is left is marked as solved.
+resistance; where it is not, a resistor that bridges a stage is taken by Miller, R_F/(1 − K), or one loop is taken out,
+R0/(1 + T), then the branch form with the exact node ratios is tried, and what is left is marked as solved.
 """
 
 from __future__ import annotations
@@ -18,6 +18,7 @@ from tauledger.hand.branches import Branch, Walk, branches, carrying, close, tot
 from tauledger.hand.equivalent import EquivalentCircuit
 from tauledger.hand.estimate import LookingIn, Resistance
 from tauledger.hand.figures import plain
+from tauledger.hand.miller import hand_gain
 
 ACCEPTED = 0.01
 LOOP_ACCEPTED = 0.005
@@ -36,6 +37,9 @@ def looking_in(circuit: EquivalentCircuit, node: str, label: str) -> LookingIn:
     spent = walk.left < 0
     if not spent and close(rule_ohm, exact, ACCEPTED):
         return LookingIn(rule_ohm, "looking in", _line(f"R({label})", found, rule_ohm), _resistances(found), "rule")
+    bridged = None if spent else _by_miller(circuit, node, label, exact)
+    if bridged is not None:
+        return bridged
     loop = None if spent else _one_loop(circuit, node, label, rule_ohm, exact)
     if loop is not None:
         return replace(loop, rule_ohm=rule_ohm)
@@ -75,6 +79,26 @@ def loop_resistance(circuit: EquivalentCircuit, node: str, k: int) -> float:
     return float(z[i, i] + (z[i] @ u) * (w @ z[:, i]) / denominator) if denominator else math.inf
 
 
+def _by_miller(circuit: EquivalentCircuit, node: str, label: str, exact: float) -> LookingIn | None:
+    """R_F/(1 − K) in parallel with what else is there: K the hand gain from the node to the resistor's far end."""
+    for k in circuit.resistors_at.get(node, ()):
+        resistor = circuit.resistors[k]
+        far = resistor.other(node)
+        if far == GROUND:
+            continue
+        gain = hand_gain(circuit, node, far)
+        if gain.source != "rule" or gain.value >= 1.0 or not gain.text:
+            continue
+        walk = Walk()
+        others = branches(circuit, node, frozenset({("R", k)}), walk)
+        ohm = resistor.ohm / (1.0 - gain.value)
+        found = [*others, Branch(resistor.name, ohm, f"{resistor.name}/(1 − K)", gain.text)]
+        if walk.left >= 0 and close(total(found), exact, ACCEPTED):
+            text = _line(f"R({label})", found, total(found))
+            return LookingIn(total(found), f"looking in, {resistor.name} by Miller", text, _resistances(found), "rule")
+    return None
+
+
 def _one_loop(circuit: EquivalentCircuit, node: str, label: str, rule_ohm: float, exact: float) -> LookingIn | None:
     """R = R0/(1 + T): R0 by the rules with one gm at 0, where that is the exact resistance then, within 0.5 %."""
     best: tuple[float, int, list[Branch], float] | None = None
@@ -92,9 +116,9 @@ def _one_loop(circuit: EquivalentCircuit, node: str, label: str, rule_ohm: float
     _, k, found, r0 = best
     owner = circuit.cells[k].owner
     t = r0 / exact - 1.0
-    head = _line(f"R0({label})", found, r0)
+    head = _line(f"R0({label}) with gm({owner}) = 0", found, r0)
     raised = " (the loop raises it)" if t < 0.0 else ""
-    text = f"{head} with gm({owner}) = 0; R = R0/(1 + T) = {plain(r0)}/{_one_plus(t)} = {plain(exact)}{raised}"
+    text = f"{head}; R = R0/(1 + T) = {plain(r0)}/{_one_plus(t)} = {plain(exact)}{raised}"
     return LookingIn(exact, f"one loop through {owner}", text, _resistances(found), "loop", loop_gain=t)
 
 

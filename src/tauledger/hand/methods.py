@@ -2,8 +2,11 @@
 
 from __future__ import annotations
 
+import math
+from collections.abc import Sequence
+
 from tauledger.hand.combine import Combined
-from tauledger.hand.estimate import Edge, MethodEstimate
+from tauledger.hand.estimate import Edge, LowerRow, MethodEstimate
 
 # Measured over 311 networks: for σ ≤ 1.5 and no zero near the edge the sum of time constants never came out high for
 # f_H; with σ < 0.5 and b1²/b2 > 10 it was 0…14 % low, while between 0.5 and 1.5 all poles by hand were within −3…+14 %.
@@ -14,16 +17,45 @@ ZERO_MATTERS = 0.10
 
 
 def methods(
-    upper: Combined | None, lower: Combined | None, *, upper_hz: float | None, lower_hz: float | None
+    upper: Combined | None,
+    lower: Combined | None,
+    *,
+    upper_hz: float | None,
+    lower_hz: float | None,
+    upper_weighted_hz: float | None = None,
+    lower_weighted_hz: float | None = None,
 ) -> tuple[MethodEstimate, ...]:
     """Give every method's f_H and f_L, the recommended one marked; the last of each edge is the exact one.
 
     upper, lower: of `combine_upper` and `combine_lower`, None where the hand side is withheld. upper_hz, lower_hz:
-    the edges of the full network, None where there is none. An edge without poles has no methods.
+    the edges of the full network, None where there is none. An edge without poles has no methods. *_weighted_hz: of
+    `weighted_upper` and `weighted_lower`.
     No method is recommended where there is no such edge, or where a zero moves it by more than 10 %: no sum of time
     constants sees zeros.
     """
-    return (*_edge("f_high", upper, upper_hz), *_edge("f_low", lower, lower_hz))
+    return (
+        *_edge("f_high", upper, upper_hz, upper_weighted_hz),
+        *_edge("f_low", lower, lower_hz, lower_weighted_hz),
+    )
+
+
+def weighted_upper(weighted_sum_s: float) -> float | None:
+    """Give 1/(2π·Σ w·R·C) in Hz, w = 1 − H(C shorted)/H; None where the sum is not positive.
+
+    Source: Hajimiri, "Generalized time- and transfer-constant circuit analysis", IEEE Trans. Circuits Syst. I 57(6),
+    2010.
+    """
+    return 1.0 / (2.0 * math.pi * weighted_sum_s) if weighted_sum_s > 0.0 else None
+
+
+def weighted_lower(rows: Sequence[LowerRow]) -> float | None:
+    """Give Σ f_k·(1 − H(open)/H(short)) in Hz by hand; None where it is not positive. Source as above, with 1/s."""
+    total = math.fsum(
+        row.edge_hand_hz * (1.0 - row.zero_hz / row.edge_exact_hz)
+        for row in rows
+        if row.in_path and row.edge_exact_hz > 0.0
+    )
+    return total if total > 0.0 else None
 
 
 def recommended(combined: Combined) -> str | None:
@@ -49,7 +81,9 @@ def recommended(combined: Combined) -> str | None:
     return "two coefficients"
 
 
-def _edge(edge: Edge, combined: Combined | None, exact_hz: float | None) -> tuple[MethodEstimate, ...]:
+def _edge(
+    edge: Edge, combined: Combined | None, exact_hz: float | None, weighted_hz: float | None
+) -> tuple[MethodEstimate, ...]:
     if combined is None or len(combined.roots.poles) == 0:
         return ()
     what = ("lowest node alone", "all nodes together")
@@ -60,6 +94,7 @@ def _edge(edge: Edge, combined: Combined | None, exact_hz: float | None) -> tupl
         (what[0], "", combined.lowest),
         (what[1], "all together", combined.all_nodes),
         ("sum of time constants", "sum of time constants", combined.sum_of_constants),
+        ("weighted sum", "", weighted_hz),
         ("root of sum of squares", "", combined.root_sum_of_squares),
         ("two coefficients", "two coefficients", combined.two_coefficients),
         ("all poles", "", combined.all_poles),

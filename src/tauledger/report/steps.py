@@ -7,7 +7,7 @@ import math
 from msgspec import Struct
 
 from tauledger.record import Review
-from tauledger.report.layout import HEADING, Block, Prose, Section
+from tauledger.report.layout import HEADING, Block, Prose, Row, Section, Table
 from tauledger.report.wording import EDGE, move, number, retitled
 
 _STEP_SHOWN = 0.005
@@ -71,6 +71,18 @@ def methods(review: Review, edge: str) -> str:
         f"{'recommended: ' if estimate.recommended else ''}{estimate.method} {move(estimate.difference)}"
         for estimate in told
     )
+
+
+def methods_table(review: Review, edge: str) -> Section:
+    """Give every method's answer for one edge with its error against the simulation, the recommended one marked."""
+    told = [estimate for estimate in review.estimates if estimate.edge == edge]
+    if not told:
+        return Section(())
+    rows = tuple(
+        Row((one.method, number(one.hz, "Hz"), move(one.difference), "recommended" if one.recommended else ""))
+        for one in told
+    )
+    return Section((Table("lrrl", (f"METHODS, {EDGE[edge]}", "f", "off by", ""), rows),))
 
 
 def _steps(review: Review, edge: str) -> list[_Told]:

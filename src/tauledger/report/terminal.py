@@ -30,9 +30,11 @@ def render(review: Review, *, color: bool, unicode: bool, width: int = 80, verbo
         reasons.causes(review, verbose=verbose),
         upper.upper_budget(review, verbose=verbose),
         steps.steps(review, "f_high"),
+        steps.methods_table(review, "f_high") if verbose else Section(()),
         upper.upper_shares(review, verbose=verbose),
         lower.lower_edge(review, verbose=verbose),
         steps.steps(review, "f_low") if verbose else Section(()),
+        steps.methods_table(review, "f_low") if verbose else Section(()),
         poles.poles_and_zeros(review, verbose=verbose),
         reasons.closing(review),
     )

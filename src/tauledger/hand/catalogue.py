@@ -1,0 +1,143 @@
+"""All that the hand side knows, as a list: looking-in rules, forms for loops, Miller's split, methods for a band edge.
+
+The list is what `tauledger methods` prints; rules come from the rules themselves, so that neither can drift.
+"""
+
+from __future__ import annotations
+
+from msgspec import Struct
+
+from tauledger.hand.rules import RULES
+
+GRAY = "Gray, Hurst, Lewis and Meyer, Analysis and Design of Analog Integrated Circuits, 5th ed., 2009"
+HAJIMIRI = "Hajimiri, IEEE Trans. Circuits Syst. I 57(6), 2010 (time and transfer constants)"
+SEDRA = "Sedra and Smith, Microelectronic Circuits, 8th ed."
+
+
+class Entry(Struct, frozen=True):
+    """One rule or method: group, name, formula as written on paper, where it holds, and who published it."""
+
+    group: str
+    name: str
+    formula: str
+    valid: str
+    source: str
+
+
+LOOPS: tuple[Entry, ...] = (
+    Entry(
+        "loops and bridges",
+        "one loop",
+        "R = R0/(1 + T)",
+        "one gm closes the loop; R0 with that gm at zero is reached by the rules; exact, T from the solved network",
+        "Blackman, Bell Syst. Tech. J. 22(3), 1943; asymptotic forms in Gray et al., ch. 8",
+    ),
+    Entry(
+        "loops and bridges",
+        "bridging resistor by Miller",
+        "R_F/(1 − K) at the node from which K is driven",
+        "K between the two ends by hand, driven from the node itself; not at the far end",
+        "Miller, Scientific Papers of the Bureau of Standards 15(351), 1920",
+    ),
+    Entry(
+        "loops and bridges",
+        "branch form",
+        "1/R = Σ (1 − K_m)/R_m",
+        "all branches at the node passive; K_m of their far ends from the solved network",
+        "Kirchhoff's current law at the node",
+    ),
+    Entry(
+        "loops and bridges",
+        "half circuit",
+        "axis at ground, bridging R/2 and 2·C",
+        "both halves equal within 1e-6 and driven in opposite phase",
+        f"{GRAY}, sec. 3.5.5",
+    ),
+    Entry(
+        "loops and bridges",
+        "both ends",
+        "R = R_a·(1 − K_ab) + R_b·(1 − K_ba)",
+        "a capacitance between two live nodes; across a common emitter's C_μ it is R_B·(1 + gm·R_C) + R_C",
+        f"{GRAY}, sec. 7.3.2",
+    ),
+)
+
+CAPACITANCES: tuple[Entry, ...] = (
+    Entry(
+        "Miller's split",
+        "at the driven end",
+        "C·(1 − K), K the gain driven from this node to the other end",
+        "the gain is still the mid-band one at the edge; the signed gain of the bridged nodes, not the overall one",
+        "Miller, 1920; Gray et al., sec. 7.2",
+    ),
+    Entry(
+        "Miller's split",
+        "at the far end",
+        "C·(1 + 1/|A|)",
+        "gain −|A| with |A| ≥ 1; no pole of its own follows from it",
+        "Gray et al., sec. 7.2",
+    ),
+)
+
+METHODS: tuple[Entry, ...] = (
+    Entry(
+        "band edge",
+        "lowest node alone",
+        "f = 1/(2π·max R·C)",
+        "one node dominates and the others together hold less than a few per cent of Σ R·C",
+        "common practice",
+    ),
+    Entry(
+        "band edge",
+        "all nodes together",
+        "Π √(1 + (2πf·R·C)²) = √2",
+        "nodes that do not act on each other (0.5 ≤ σ ≤ 1.5), real poles",
+        "common practice",
+    ),
+    Entry(
+        "band edge",
+        "sum of time constants",
+        "f_H = 1/(2π·Σ R·C); f_L = Σ 1/(2π·R·C)",
+        "a dominant real pole (σ < 0.5, b1²/b2 > 10), no zero near: then on the safe side",
+        f"{GRAY}, sec. 7.3.2 and 7.4",
+    ),
+    Entry(
+        "band edge",
+        "weighted sum",
+        "f_H = 1/(2π·Σ w·R·C), w = 1 − H(C shorted)/H",
+        "as the sum, where capacitances that the output does not see (decoupling) are in it; Σ w·R·C is the delay",
+        HAJIMIRI,
+    ),
+    Entry(
+        "band edge",
+        "root of sum of squares",
+        "f = 1/(2π·√(Σ 1/p² − 2·Σ 1/z²))",
+        "real poles; 0.5 % off for two poles ten to one apart, 10 % for two equal ones",
+        f"{SEDRA}, sec. 10.3.2 (from memory)",
+    ),
+    Entry(
+        "band edge",
+        "two coefficients",
+        "|1 + b1·jω + b2·(jω)²| = √2, b1 = Σ τ_i, b2 = Σ τ_i·τ_j with i shorted",
+        "two poles count, real or complex, no zero near",
+        "Cochrun and Grabel, IEEE Trans. Circuit Theory CT-20(1), 1973",
+    ),
+    Entry("band edge", "all poles", "Π |1 − jω/p| = √2", "no zero near the edge", f"{GRAY}, sec. 7.3"),
+    Entry("band edge", "exact", "|H(jω)| = |H_mid|/√2 of the rebuilt network", "always", "algebra"),
+    Entry("band edge", "simulated", "the same crossing in ngspice's sweep, refined to 1e-6", "always", "ngspice"),
+)
+
+
+def entries() -> tuple[Entry, ...]:
+    """Give every rule and method, in the order in which a reader needs them."""
+    rules = tuple(
+        Entry(
+            "looking in",
+            rule.name,
+            f"{rule.formula} (short: {rule.short})" if rule.short else rule.formula,
+            rule.valid,
+            rule.source,
+        )
+        for rule in RULES
+    )
+    return (*rules, *LOOPS, *CAPACITANCES, *METHODS)
