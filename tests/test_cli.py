@@ -108,9 +108,28 @@ def test_without_options_the_netlist_decides(run: Run, asked: dict[str, Any]) ->
 
 
 def test_verbose_shows_the_working(run: Run, asked: dict[str, Any]) -> None:
-    assert "Working, node by node" in run("review", "board.cir", "--verbose")[1]
-    assert "Working, node by node" not in run("review", "board.cir")[1]
+    assert "WORKING, base of Q1 (b)" in run("review", "board.cir", "--verbose")[1]
+    assert "WORKING" not in run("review", "board.cir")[1]
     assert asked
+
+
+def test_working_is_shown_for_the_nodes_that_are_asked_for(run: Run, asked: dict[str, Any]) -> None:
+    out = run("review", "board.cir", "--working", "B")[1]
+    assert out.count("WORKING") == 1
+    assert "WORKING, base of Q1 (b)" in out
+    code, out, err = run("review", "board.cir", "--working", "nowhere")
+    assert (code, out) == (ExitCode.UNUSABLE_INPUT, "")
+    assert "--working nowhere: no signal node of that name" in err
+    assert "signal nodes here: b" in err
+    assert asked
+
+
+def test_methods_lists_rules_and_methods_within_80_columns(run: Run) -> None:
+    code, out, err = run("methods")
+    assert (code, err) == (ExitCode.OK, "")
+    for wanted in ("into emitter", "(r_π + R_B)/(β + 1)", "sum of time constants", "holds", "source", "Miller"):
+        assert wanted in out
+    assert max(map(len, out.splitlines())) <= 80
 
 
 @pytest.mark.parametrize(("typed", "hertz"), [("10k", 1e4), ("8.5kHz", 8.5e3), ("1e4", 1e4), ("10m", 0.01), ("0", 0.0)])

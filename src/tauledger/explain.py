@@ -15,6 +15,7 @@ from msgspec import Struct
 from tauledger.causes.catalogue import find_causes, find_notes
 from tauledger.causes.cause import Cause, Note
 from tauledger.causes.evidence import EdgeEvidence, Evidence
+from tauledger.hand.at_edge import edge_factors
 from tauledger.hand.budget import part_resistances, signal_nodes
 from tauledger.hand.combine import Combined, combine_lower, combine_upper
 from tauledger.hand.effects import pole_effects
@@ -51,6 +52,7 @@ class Explanation(Struct, frozen=True):
     shares_high, shares_low: None where there is no such edge. ten_percent_less: both edges with one part at a time 10 %
     smaller, by part name. open, short: time constants of the upper and lower network, None where the hand side is
     withheld, as hand is. pole_effects: what each visible pole does to its band edge.
+    edge_factors: 1 − K at f_H by node of the upper network and part.
     """
 
     shares_high: Shares | None
@@ -63,6 +65,7 @@ class Explanation(Struct, frozen=True):
     pole_effects: Mapping[complex, float]
     causes: tuple[Cause, ...]
     notes: tuple[Note, ...]
+    edge_factors: Mapping[tuple[str, str], complex] = {}
 
 
 NOTHING = Explanation(None, None, {}, None, None, None, (), {}, (), ())
@@ -119,7 +122,15 @@ def explain(numbers: Numbers) -> Explanation:
         pole_effects=effects,
         causes=find_causes(evidence),
         notes=find_notes(evidence),
+        edge_factors=_edge_factors(numbers, hand),
     )
+
+
+def _edge_factors(numbers: Numbers, hand: HandEstimate | None) -> Mapping[tuple[str, str], complex]:
+    high = numbers.edges.f_high
+    if hand is None or high is None or high.hz is None:
+        return {}
+    return edge_factors(numbers.bands, hand.nodes, high.hz)
 
 
 def _shares(numbers: Numbers, edge: Edge | None) -> Shares | None:

@@ -146,6 +146,7 @@ class CapacitanceTerm(Struct, frozen=True):
 
     time_constant_s: what it adds to the node's row, with the resistance at its own place (an inner node of a device
     faces another one than the outer). text: how K came about, empty where the other end is at AC ground.
+    edge_factor_*: 1 − K at f_H, None where the other end is at AC ground or there is no f_H.
     """
 
     part: str
@@ -155,13 +156,33 @@ class CapacitanceTerm(Struct, frozen=True):
     gain_imag: float
     time_constant_s: float | None = None
     text: str = ""
+    edge_factor_real: float | None = None
+    edge_factor_imag: float | None = None
+
+
+class WorkingLine(Struct, frozen=True):
+    """One node of a row by itself, an inner node of a device where there is a series resistance.
+
+    source: as in `Working`. why: the reason where R·C by hand and exact differ by more than 2 %.
+    """
+
+    node: str
+    text: str
+    source: str
+    resistance_hand_ohm: float
+    resistance_exact_ohm: float
+    resistances: tuple[ResistanceTerm, ...]
+    capacitances: tuple[CapacitanceTerm, ...]
+    time_constant_s: float
+    time_constant_exact_s: float
+    why: str = ""
 
 
 class Working(Struct, frozen=True):
     """How the hand resistance and capacitance of a node came about.
 
     source: rule, loop, branch or solved (the exact value, because no rule fits). loop_gain: T of the one-loop
-    form, else None.
+    form, else None. lines: the nodes of the row one by one, the one with the longest time constant first.
     """
 
     rule: str
@@ -170,6 +191,7 @@ class Working(Struct, frozen=True):
     capacitances: tuple[CapacitanceTerm, ...]
     loop_gain: float | None
     source: str
+    lines: tuple[WorkingLine, ...] = ()
 
 
 class NodeRow(Struct, frozen=True):

@@ -12,7 +12,7 @@ from tauledger.commands.console import can_show_symbols, colored, hertz, print_b
 from tauledger.errors import ExitCode, InputError
 
 if TYPE_CHECKING:
-    from tauledger.record import Review
+    from tauledger.record import NodeRow, Review
 
 _COLOR_CHOICES = ("auto", "always", "never")
 _EXIT_CODES = (
@@ -30,6 +30,7 @@ _EXIT_CODES = (
 @click.option("--timeout", metavar="S", type=float, default=60.0, show_default=True, help="Seconds ngspice may take.")
 @click.option("--library", metavar="PATH", help="Use this ngspice library.")
 @click.option("--color", type=click.Choice(_COLOR_CHOICES), default="auto", show_default=True, help="Colour the text.")
+@click.option("--working", metavar="NODE", multiple=True, help="Work a signal node out, line by line; repeatable.")
 @click.option("--verbose", is_flag=True, help="Show every node, part, pole and zero, and the working.")
 def review_command(
     netlist: str,
@@ -40,6 +41,7 @@ def review_command(
     timeout: float,
     library: str | None,
     color: str,
+    working: tuple[str, ...],
     verbose: bool,
 ) -> ExitCode:
     """Review the amplifier in NETLIST: does paper agree with the simulation, where not, and why?"""
@@ -69,9 +71,24 @@ def review_command(
     from tauledger.report.terminal import render
 
     encoding = sys.stdout.encoding
-    text = render(found, color=colored(color), unicode=can_show_symbols(encoding), verbose=verbose)
+    text = render(
+        found, color=colored(color), unicode=can_show_symbols(encoding), verbose=verbose, working=_nodes(found, working)
+    )
     print_bytes(text.encode(encoding, errors="backslashreplace"))
     return _verdict(found)
+
+
+def _nodes(found: Review, working: tuple[str, ...]) -> list[NodeRow]:
+    from tauledger.report.working import find_nodes
+
+    nodes: list[NodeRow] = []
+    for wanted in working:
+        named = find_nodes(found, wanted)
+        if not named:
+            there = ", ".join(node.name for node in found.nodes) or "none: the notes say why"
+            raise InputError(f"--working {wanted}: no signal node of that name", f"signal nodes here: {there}")
+        nodes += [node for node in named if node not in nodes]
+    return nodes
 
 
 def _verdict(found: Review) -> ExitCode:

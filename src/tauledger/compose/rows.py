@@ -5,7 +5,7 @@ from __future__ import annotations
 import math
 
 from tauledger.explain import Explanation
-from tauledger.hand.estimate import InnerLine, SignalNode
+from tauledger.hand.estimate import InnerLine, LookingIn, MillerTerm, SignalNode
 from tauledger.hand.halves import counted
 from tauledger.network.constants import OpenConstant
 from tauledger.network.lower import ShortConstant
@@ -25,6 +25,7 @@ from tauledger.record import (
     TenPercent,
     UpperBudget,
     Working,
+    WorkingLine,
     ZeroFacts,
 )
 
@@ -142,33 +143,56 @@ def _node_row(node: SignalNode, explanation: Explanation) -> NodeRow:
         time_constant_exact_s=node.time_constant_exact_s,
         share=EdgePair(_node_share(explanation.shares_high, node), None),
         per_farad=EdgePair(_per_farad(explanation.shares_high, node), _per_farad(explanation.shares_low, node)),
-        working=_working(node),
+        working=_working(node, explanation),
         image=node.image,
         second=node.second,
     )
 
 
-def _working(node: SignalNode) -> Working:
+def _working(node: SignalNode, explanation: Explanation) -> Working:
     first = node.lines[0].resistance
+    lines = tuple(
+        WorkingLine(
+            node=line.node,
+            text="; ".join(_line_texts(line)),
+            source=line.resistance.source,
+            resistance_hand_ohm=line.resistance.ohm,
+            resistance_exact_ohm=line.resistance_exact_ohm,
+            resistances=_resistance_terms(line.resistance),
+            capacitances=tuple(_capacitance_term(line, term, explanation) for term in line.capacitances),
+            time_constant_s=line.time_constant_s,
+            time_constant_exact_s=line.time_constant_exact_s,
+            why=line.why,
+        )
+        for line in node.lines
+    )
     return Working(
         rule=first.rule,
-        text="; ".join(text for line in node.lines for text in _line_texts(line)),
-        resistances=tuple(ResistanceTerm(term.name, term.ohm) for term in first.resistances),
-        capacitances=tuple(
-            CapacitanceTerm(
-                part=term.part,
-                farad=term.farad,
-                factor=term.factor,
-                gain_real=term.gain.real,
-                gain_imag=term.gain.imag,
-                time_constant_s=line.resistance.ohm * term.farad * term.factor,
-                text=term.text,
-            )
-            for line in node.lines
-            for term in line.capacitances
-        ),
+        text="; ".join(line.text for line in lines),
+        resistances=_resistance_terms(first),
+        capacitances=tuple(term for line in lines for term in line.capacitances),
         loop_gain=first.loop_gain,
         source=first.source,
+        lines=lines,
+    )
+
+
+def _resistance_terms(seen: LookingIn) -> tuple[ResistanceTerm, ...]:
+    return tuple(ResistanceTerm(term.name, term.ohm) for term in seen.resistances)
+
+
+def _capacitance_term(line: InnerLine, term: MillerTerm, explanation: Explanation) -> CapacitanceTerm:
+    at_edge = explanation.edge_factors.get((line.at, term.part))
+    return CapacitanceTerm(
+        part=term.part,
+        farad=term.farad,
+        factor=term.factor,
+        gain_real=term.gain.real,
+        gain_imag=term.gain.imag,
+        time_constant_s=line.resistance.ohm * term.farad * term.factor,
+        text=term.text,
+        edge_factor_real=at_edge.real if at_edge is not None else None,
+        edge_factor_imag=at_edge.imag if at_edge is not None else None,
     )
 
 

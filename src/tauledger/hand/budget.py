@@ -14,16 +14,18 @@ from tauledger.circuit import GROUND
 from tauledger.devices.family import Device
 from tauledger.hand.elements import Capacitor
 from tauledger.hand.equivalent import EquivalentCircuit, upper_circuit
-from tauledger.hand.estimate import InnerLine, LookingIn, Resistance, SignalNode, WorkingSource
+from tauledger.hand.estimate import InnerLine, LookingIn, MillerTerm, Resistance, SignalNode, WorkingSource
 from tauledger.hand.figures import plain
 from tauledger.hand.looking_in import looking_in
 from tauledger.hand.miller import hand_gain, miller_term
 from tauledger.hand.mirror import find_mirror, half_circuit
 from tauledger.hand.nodes import Group, Passage, groups, node_name, passages
 from tauledger.network.bands import Bands
+from tauledger.quantity import percent
 
 ACCEPTED = 0.01
 NOT_WORTH_A_FACTOR = 1e-3
+WORTH_A_REASON = 0.02
 LEAST_SURE: tuple[WorkingSource, ...] = ("rule", "loop", "branch", "solved")
 
 
@@ -141,7 +143,7 @@ def _node_line(circuit: EquivalentCircuit, node: str) -> InnerLine:
     resistance = looking_in(circuit, node, name)
     terms = tuple(miller_term(circuit, capacitor, node) for capacitor in circuit.capacitors if _at(capacitor, node))
     farad = sum(term.farad * term.factor for term in terms)
-    return InnerLine(
+    line = InnerLine(
         node=name,
         at=node,
         resistance=resistance,
@@ -151,6 +153,32 @@ def _node_line(circuit: EquivalentCircuit, node: str) -> InnerLine:
         time_constant_s=resistance.ohm * farad,
         time_constant_exact_s=float(circuit.constant[circuit.row[node]]),
     )
+    return replace(line, why=difference_reason(line))
+
+
+def difference_reason(line: InnerLine) -> str:
+    """Name what makes R·C by hand and the exact time constant of a line differ by more than 2 %; empty below that.
+
+    The exact one is Z·Σ C·(1 − K) with exact K, plus what controlled charges (transcapacitances) add.
+    """
+    hand, exact = line.time_constant_s, line.time_constant_exact_s
+    if abs(hand - exact) <= WORTH_A_REASON * abs(exact):
+        return ""
+    z = line.resistance_exact_ohm
+    off: dict[str, float] = {}
+    for term in line.capacitances:
+        about = _about(term)
+        off[about] = off.get(about, 0.0) + z * term.farad * (term.factor - term.exact_factor)
+    off["the resistance by hand"] = (line.resistance.ohm - z) * line.capacitance_f
+    off["a charge controlled from elsewhere, which paper leaves out"] = hand - exact - sum(off.values())
+    name = max(off, key=lambda one: abs(off[one]))
+    return f"{name}: {percent(off[name] / exact)} of {percent(hand / exact - 1.0)}"
+
+
+def _about(term: MillerTerm) -> str:
+    if term.text.startswith("1 + 1/|A|"):
+        return "1 + 1/|A| stands for 1 − K"
+    return f"the gain by hand across {term.part}"
 
 
 def _at(capacitor: Capacitor, node: str) -> bool:

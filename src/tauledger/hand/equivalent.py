@@ -39,8 +39,8 @@ class EquivalentCircuit(Struct, frozen=True):
     at: every node of the whole network → its hand node, "0" for ground, supplies and driven nodes. driven: those
     of the whole network's nodes that a source moves. members: hand node → nodes of the whole network, file order.
     nodes: the n live hand nodes. impedance Z: (n, n) ohm, input nulled. whole: the same, complex, at s_mid, which is 0
-    but where capacitors set the gain; impedance is then Re Z of the poles above s_mid. voltage x, adjoint λ, injected: (n,) complex;
-    injected is the drive as a Norton current into each live node, A. response H.
+    but where capacitors set the gain; impedance is then Re Z of the poles above s_mid. voltage x, adjoint λ, injected:
+    (n,) complex; injected is the drive as a Norton current into each live node, A. response H.
     inner_names: nodes of the whole network behind a series resistance. output_nodes: netlist nodes of the output.
     products: (n, n) C·Z, s. charge: (n,) C·x per ω, C. floating: live nodes without any DC path.
     """

@@ -23,7 +23,7 @@ class MillerTerm(Struct, frozen=True):
     """One capacitance at a node: it counts as farad·factor there; `gain` is K from this node to its other end.
 
     text: the line for K as written on paper, empty where the other end is at AC ground. source: "rule", or "solved"
-    where the hand gain misses 1 − K by more than 1 %.
+    where the hand gain misses 1 − K by more than 1 %. exact_factor: 1 − K with the exact gain driven from this node.
     """
 
     part: str
@@ -32,6 +32,7 @@ class MillerTerm(Struct, frozen=True):
     gain: complex
     text: str = ""
     source: WorkingSource = "rule"
+    exact_factor: float = 1.0
 
 
 class LookingIn(Struct, frozen=True):
@@ -54,7 +55,8 @@ class LookingIn(Struct, frozen=True):
 class InnerLine(Struct, frozen=True):
     """One netlist or inner node of a signal node's row: its own looking-in resistance, Miller terms and exact values.
 
-    node: as it is called on paper. at: its node in the upper network.
+    node: as it is called on paper. at: its node in the upper network. why: the reason where R·C by hand and the exact
+    constant differ by more than 2 %.
     """
 
     node: str
@@ -65,6 +67,7 @@ class InnerLine(Struct, frozen=True):
     capacitance_f: float
     time_constant_s: float
     time_constant_exact_s: float
+    why: str = ""
 
 
 class SignalNode(Struct, frozen=True):

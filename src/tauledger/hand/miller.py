@@ -70,18 +70,20 @@ def miller_term(circuit: EquivalentCircuit, capacitor: Capacitor, node: str) -> 
     Keeps the sign: a gain above 1 makes the capacitance negative. Across a half circuit K is −1.
     """
     if capacitor.mirrored:
-        return MillerTerm(capacitor.part, capacitor.farad, 2.0, -1 + 0j, "K = −1, the other half moves the other way")
+        text = "K = −1, the other half moves the other way"
+        return MillerTerm(capacitor.part, capacitor.farad, 2.0, -1 + 0j, text, exact_factor=2.0)
     far = capacitor.b if node == capacitor.a else capacitor.a
     here = hand_gain(circuit, node, far)
     if far == GROUND:
         return MillerTerm(capacitor.part, capacitor.farad, 1.0, 0j)
+    exact = 1.0 - circuit.gain(node, far)
     back = hand_gain(circuit, far, node)
     if back.value <= TEXTBOOK_BELOW and back.value < here.value:
         a = -back.value
         text = f"1 + 1/|A| = 1 + 1/{plain(a)} = {plain(1.0 + 1.0 / a)}"
-        return MillerTerm(capacitor.part, capacitor.farad, 1.0 + 1.0 / a, complex(-1.0 / a), text, back.source)
+        return MillerTerm(capacitor.part, capacitor.farad, 1.0 + 1.0 / a, complex(-1.0 / a), text, back.source, exact)
     k = here.value
-    return MillerTerm(capacitor.part, capacitor.farad, 1.0 - k, complex(k), here.text, here.source)
+    return MillerTerm(capacitor.part, capacitor.farad, 1.0 - k, complex(k), here.text, here.source, exact)
 
 
 def _chains(circuit: EquivalentCircuit, start: str, end: str) -> Iterator[tuple[_Hop, ...]]:

@@ -8,19 +8,29 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
-from tauledger.record import Review
+from tauledger.record import NodeRow, Review
 from tauledger.report import lower, poles, reasons, steps, summary, upper
 from tauledger.report.layout import CAUTION, HEADING, STRONG, WARNING, Line, Section, lay_out
+from tauledger.report.working import workings
 
 _PAGE = 60
 _STYLES = {HEADING: "bold cyan", STRONG: "bold", WARNING: "bold red", CAUTION: "yellow", "": ""}
 
 
-def render(review: Review, *, color: bool, unicode: bool, width: int = 80, verbose: bool = False) -> str:
+def render(
+    review: Review,
+    *,
+    color: bool,
+    unicode: bool,
+    width: int = 80,
+    verbose: bool = False,
+    working: Sequence[NodeRow] = (),
+) -> str:
     """Give the report as lines of text, each with its line end.
 
     color: with terminal colours. unicode: with µ, Ω, π, τ, ‖; else u, ohm, pi, tau, ||.
-    verbose: every node, part, pole and zero, and the working of each node.
+    verbose: every node, part, pole and zero, and the working of each node. working: nodes whose working is wanted
+    beside the page.
     """
     sections = (
         reasons.warning(review),
@@ -36,6 +46,7 @@ def render(review: Review, *, color: bool, unicode: bool, width: int = 80, verbo
         steps.steps(review, "f_low") if verbose else Section(()),
         steps.methods_table(review, "f_low") if verbose else Section(()),
         poles.poles_and_zeros(review, verbose=verbose),
+        *(workings(review, [node]) for node in working if not verbose),
         reasons.closing(review),
     )
     lines = lay_out(sections, width=width, unicode=unicode, page=_PAGE)

@@ -15,9 +15,9 @@ from tauledger.report.wording import (
     number,
     part_titles,
     part_unit,
-    retitled,
     share,
 )
+from tauledger.report.working import node_title, workings
 
 _PICOFARAD = 1e-12
 _MATTERS = 0.01
@@ -51,7 +51,7 @@ def upper_budget(review: Review, *, verbose: bool = False) -> Section:
     if review.budget.upper:
         blocks.append(Prose(_sums(review.budget.upper, halves=any(n.image for n in first)), lead="  "))
     if verbose:
-        blocks.extend(_workings(shown, review.parts))
+        blocks.extend(workings(review, [node for node in shown if node.working]).blocks)
     return Section(tuple(blocks), major=True)
 
 
@@ -88,12 +88,6 @@ def _node_matters(node: NodeRow, review: Review) -> bool:
 def _whole(review: Review) -> float:
     """Give the sum of the time constants that count, in s."""
     return sum(abs(row.time_constant_s or 0.0) for row in review.nodes if row.in_path and not row.second)
-
-
-def node_title(node: NodeRow) -> str:
-    """Name a row: "base of Q1 (b)"; in a balanced circuit the node of either half; and whether it is off the path."""
-    title = f"each of {node.name}, {node.image} (half circuit)" if node.image else node.title
-    return title if node.in_path else f"{title}, off path"
 
 
 def _node_row(node: NodeRow, f_high: float | None) -> Row:
@@ -196,20 +190,6 @@ def _each(alike: list[tuple[PartRow, float]], titles: Mapping[str, str]) -> str:
     label, of, _ = names[0].partition(" of ")
     owners = ", ".join(name.removeprefix(f"{label}{of}") for name in names) if of else ", ".join(names)
     return f"{label} of each of {owners}" if of else f"each of {owners}"
-
-
-def _workings(nodes: list[NodeRow], parts: tuple[PartRow, ...]) -> list[Block]:
-    blocks: list[Block] = [Prose("Working, node by node", lead="  ")]
-    for node in nodes:
-        if node.working is None:
-            continue
-        loop = "" if node.working.loop_gain is None else f", loop gain T = {node.working.loop_gain:.4g}"
-        exact = number(node.resistance_exact_ohm, "Ω")
-        facts = f"{node_title(node)}: {node.working.rule} ({node.working.source}{loop}), exact {exact}"
-        blocks.append(Prose(f"{facts}, share of f_H {share(node.share.f_high)}", lead="  "))
-        lines = retitled(node.working.text, parts).split("; ")
-        blocks.extend(Prose(line, lead="    ", hang=6) for line in lines)
-    return blocks
 
 
 def _count(many: int, word: str) -> str:
