@@ -57,7 +57,7 @@ def test_the_factor_at_the_edge_is_that_of_mid_band_where_nothing_falls() -> Non
 
 
 def test_one_plus_one_over_a_is_named_where_it_is_the_reason() -> None:
-    """At a gain of −1 the textbook's far end counts 1 + 1/|A| = 2 times, where the node driven alone sees about once."""
+    """At a gain of −1 the textbook's far end counts twice, where the node driven alone sees it about once."""
     review = review_network(boards.cascode())
     lines = [line for node in review.nodes if node.working for line in node.working.lines]
     told = [line.why for line in lines if line.why]

@@ -26,6 +26,7 @@ def methods_command() -> ExitCode:
         blocks += [
             Prose(entry.name, style=STRONG),
             Prose(entry.formula, lead="  "),
+            *([Prose(entry.short, lead="  short   ")] if entry.short else []),
             Prose(entry.valid, lead="  holds   "),
             Prose(entry.source, lead="  source  "),
         ]

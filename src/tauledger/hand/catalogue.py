@@ -15,13 +15,17 @@ SEDRA = "Sedra and Smith, Microelectronic Circuits, 8th ed."
 
 
 class Entry(Struct, frozen=True):
-    """One rule or method: group, name, formula as written on paper, where it holds, and who published it."""
+    """One rule or method: group, name, formula as written on paper, where it holds, and who published it.
+
+    short: the form that paper has instead where it is good enough, empty without one.
+    """
 
     group: str
     name: str
     formula: str
     valid: str
     source: str
+    short: str = ""
 
 
 LOOPS: tuple[Entry, ...] = (
@@ -130,14 +134,5 @@ METHODS: tuple[Entry, ...] = (
 
 def entries() -> tuple[Entry, ...]:
     """Give every rule and method, in the order in which a reader needs them."""
-    rules = tuple(
-        Entry(
-            "looking in",
-            rule.name,
-            f"{rule.formula} (short: {rule.short})" if rule.short else rule.formula,
-            rule.valid,
-            rule.source,
-        )
-        for rule in RULES
-    )
+    rules = tuple(Entry("looking in", rule.name, rule.formula, rule.valid, rule.source, rule.short) for rule in RULES)
     return (*rules, *LOOPS, *CAPACITANCES, *METHODS)
