@@ -9,6 +9,7 @@ import pytest
 from netlist_boards import BOARDS, MODEL, STAGE
 from netlist_elements import ELEMENTS
 from netlist_judge import answers, judged
+from netlist_language import LANGUAGE
 from tauledger.netlist import elaborate, read
 from tauledger.netlist.writer import flat_netlist
 
@@ -23,17 +24,17 @@ def test_our_circuit_has_the_same_operating_point_and_ac_as_the_original_file(na
     assert judged(path, elaborate(read(path), output="in")) <= SAME
 
 
-@pytest.mark.parametrize("name", ELEMENTS)
-def test_every_letter_has_the_same_operating_point_and_ac_as_in_the_original_file(name: str, tmp_path: Path) -> None:
+@pytest.mark.parametrize("name", [*ELEMENTS, *LANGUAGE])
+def test_every_letter_and_every_rule_gives_what_the_original_file_gives(name: str, tmp_path: Path) -> None:
     path = tmp_path / "board.cir"
-    path.write_text(ELEMENTS[name], encoding="utf-8")
+    path.write_text({**ELEMENTS, **LANGUAGE}[name], encoding="utf-8")
     assert judged(path, elaborate(read(path), purpose="reading")) <= SAME
 
 
-@pytest.mark.parametrize("name", [*BOARDS, *ELEMENTS])
+@pytest.mark.parametrize("name", [*BOARDS, *ELEMENTS, *LANGUAGE])
 def test_the_flat_deck_is_read_back_to_itself(name: str, tmp_path: Path) -> None:
     path = tmp_path / "board.cir"
-    path.write_text({**BOARDS, **ELEMENTS}[name], encoding="utf-8")
+    path.write_text({**BOARDS, **ELEMENTS, **LANGUAGE}[name], encoding="utf-8")
     flat = flat_netlist(elaborate(read(path), purpose="reading"))
     path.write_text(flat, encoding="utf-8")
     assert flat_netlist(elaborate(read(path), purpose="reading")) == flat

@@ -1,13 +1,17 @@
-"""The assignments of a `.param` card: NAME=VALUE, where a value is a number, a bare formula without blanks outside
-parentheses, or a formula in braces or quotes."""
+"""The assignments of `.param` and `.func` cards: NAME=VALUE and NAME(X,Y)=BODY.
+
+A value is a number, a bare formula without blanks outside parentheses, or a formula in braces or quotes.
+"""
 
 from __future__ import annotations
 
 import re
 
+from tauledger.errors import NetlistError
+from tauledger.netlist.behaviour import parse_behaviour
 from tauledger.netlist.diagnostics import Site
 from tauledger.netlist.expressions import parse_formula
-from tauledger.netlist.items import Item, Setting, Value, Word
+from tauledger.netlist.items import Function, Item, Setting, Value, Word
 
 _NAME = re.compile(r"[A-Za-z_][A-Za-z0-9_]*")
 _CLOSING = {"{": "}", "'": "'", '"': '"'}
@@ -32,7 +36,10 @@ def parse_assignments(site: Site) -> tuple[Item, ...]:
         name = Word(match.group(), at)
         equals = _skip(text, match.end())
         if equals < len(text) and text[equals] == "(":
-            raise site.fault(name, "functions of one's own are not supported by this version")
+            function, at = _function(site, name, equals)
+            items.append(function)
+            at = _skip(text, at)
+            continue
         if equals == len(text) or text[equals] != "=":
             message = "name=value is expected here"
             raise site.fault(name, message, "a formula with blanks stands in braces: name={a + b}")
@@ -41,6 +48,54 @@ def parse_assignments(site: Site) -> tuple[Item, ...]:
         items.append(Setting(name, value))
         at = _skip(text, at)
     return tuple(items)
+
+
+def parse_functions(site: Site) -> tuple[Item, ...]:
+    """Give the items of a `.func` card: its word and one function, NAME(X,Y) {BODY}, with or without equals sign."""
+    text = site.card.text
+    word = text.split(maxsplit=1)[0]
+    at = _skip(text, len(word))
+    match = _NAME.match(text, at)
+    opening = _skip(text, match.end()) if match else at
+    if match is None or text[opening : opening + 1] != "(":
+        raise site.fault(at, "the name of a function and its arguments are expected here", "write .func f(x) {2*x}")
+    function, end = _function(site, Word(match.group(), at), opening)
+    if text[end:].strip():
+        raise site.fault(_skip(text, end), "the function has ended before this", "put its body in braces: {..}")
+    return (Word(word, 0), function)
+
+
+def _function(site: Site, name: Word, opening: int) -> tuple[Function, int]:
+    """Read the arguments that begin at `opening` and the body; give the offset behind it."""
+    text = site.card.text
+    closing = text.find(")", opening)
+    if closing < 0:
+        raise site.fault(opening, "this parenthesis is not closed", "close it with )")
+    parameters = tuple(text[opening + 1 : closing].replace(",", " ").split())
+    for parameter in parameters:
+        if _NAME.fullmatch(parameter) is None:
+            raise site.fault(text.find(parameter, opening), "the name of an argument is expected here")
+    start = _skip(text, closing + 1)
+    if text[start : start + 1] == "=":
+        start = _skip(text, start + 1)
+    if start == len(text):
+        raise site.fault(start, "the body of the function is missing", "write .func f(x) {2*x}")
+    quote = _CLOSING.get(text[start], "")
+    end = text.find(quote, start + 1) if quote else start + len(text[start:].split(maxsplit=1)[0])
+    if end < 0:
+        raise site.fault(start, f"this is not closed: {quote} is missing")
+    inner = start + len(quote)
+    body = text[inner:end]
+    try:
+        formula = parse_formula(site, body, start, inner)
+    except NetlistError:
+        # What only a source can mean, such as a voltage, is no formula of numbers.
+        return Function(name, parameters, None, parse_behaviour(site, body, start, inner)), end + len(quote)
+    try:
+        behaviour = parse_behaviour(site, body, start, inner)
+    except NetlistError:
+        return Function(name, parameters, formula, None), end + len(quote)
+    return Function(name, parameters, formula, behaviour), end + len(quote)
 
 
 def _skip(text: str, at: int) -> int:

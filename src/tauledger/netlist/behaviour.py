@@ -8,7 +8,7 @@ name.
 from __future__ import annotations
 
 import math
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from functools import cache
 from types import SimpleNamespace
 from typing import TYPE_CHECKING, Any
@@ -20,6 +20,7 @@ from tauledger.netlist.diagnostics import Site, nearest
 from tauledger.netlist.expressions import advice, check_length
 from tauledger.netlist.formulas import Behaviour, Call, Name, Number, Operation, Probe, Tree
 from tauledger.netlist.numbers import read_number
+from tauledger.netlist.scopes import Scope, check_call, find, find_function, known_names
 
 if TYPE_CHECKING:
     from lark import Lark, Token
@@ -68,37 +69,51 @@ def parse_behaviour(site: Site, text: str, at: int, inner: int) -> Behaviour:
 
 def formula_of(
     site: Site,
-    given: Behaviour,
+    expression: Behaviour,
     *,
-    parameter: Callable[[str], float | None],
-    known: Callable[[], Sequence[str]],
+    scope: Scope,
     node: Callable[[str], int],
     source: Callable[[str], str],
 ) -> circuit.Formula:
     """Turn an expression into the formula of an element.
 
-    parameter: value of a parameter by name, None where nobody defines it. known: names to suggest. node, source: number
-    of a node and flat name of a voltage source by the name on the card.
+    scope: where its parameters and functions are looked up. node, source: number of a node and flat name of a voltage
+    source by the name on the card.
     Raises NetlistError for a name or function that is not known and for a wrong number of arguments.
     """
 
     def fault(tree: Tree, message: str, hint: str = "") -> NetlistError:
         wide = len(tree.text) if isinstance(tree, Name) else len(tree.function) if isinstance(tree, Call) else 1
-        return site.fault(given.inner + tree.at, message, hint, wide=wide)
+        return site.fault(expression.inner + tree.at, message, hint, wide=wide)
 
-    def convert(tree: Tree) -> circuit.Formula:
+    def function_of(tree: Call, given: Mapping[str, circuit.Formula]) -> circuit.Formula | None:
+        known = find_function(scope, fold(tree.function))
+        if known is None:
+            return None
+        function = known[1]
+        check_call(scope, tree, function, lambda message, hint: fault(tree, message, hint))
+        if function.behaviour is None:
+            raise fault(tree, f"{function.name.text} has no meaning in a source", "its body is of the other dialect")
+        arguments = dict(zip(map(fold, function.parameters), (convert(a, given) for a in tree.arguments), strict=True))
+        found = convert(function.behaviour.tree, arguments)
+        scope.calls[tree.function] -= 1
+        return found
+
+    def convert(tree: Tree, given: Mapping[str, circuit.Formula]) -> circuit.Formula:
         match tree:
             case Number(value=value):
                 return circuit.Number(value)
             case Name(text=text):
                 key = fold(text)
+                if key in given:
+                    return given[key]
                 if key in CONSTANTS:
                     return circuit.Number(CONSTANTS[key])
                 if key in VARIABLES:
                     return circuit.Variable(key)
-                value_of = parameter(text)
+                value_of = find(scope, key)
                 if value_of is None:
-                    hint = nearest(text, known(), otherwise=f"write v({text}) for the voltage of a node")
+                    hint = nearest(text, known_names(scope), otherwise=f"write v({text}) for the voltage of a node")
                     raise fault(tree, f"no parameter is called {text!r}", hint)
                 return circuit.Number(value_of)
             case Probe(kind="i", names=names):
@@ -106,17 +121,20 @@ def formula_of(
             case Probe(names=names):
                 return circuit.Voltage(node(names[0]), node(names[1]) if len(names) > 1 else 0)
             case Operation(operator="positive", operands=(inner,)):
-                return convert(inner)
+                return convert(inner, given)
             case Operation(operator="negative", operands=(Number(value=value),)):
                 return circuit.Number(-value)
             case Operation(operator=sign, operands=operands):
-                return circuit.Apply(_SAME.get(sign, sign), tuple(convert(part) for part in operands))
+                return circuit.Apply(_SAME.get(sign, sign), tuple(convert(part, given) for part in operands))
             case Call(function=name, arguments=arguments):
+                own = function_of(tree, given)
+                if own is not None:
+                    return own
                 _check_call(tree, fault)
-                return circuit.Apply(fold(name), tuple(convert(part) for part in arguments))
+                return circuit.Apply(fold(name), tuple(convert(part, given) for part in arguments))
         raise TypeError(tree)
 
-    return convert(given.tree)
+    return convert(expression.tree, {})
 
 
 def _check_call(tree: Call, fault: Callable[[Tree, str, str], NetlistError]) -> None:

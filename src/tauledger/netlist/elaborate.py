@@ -10,6 +10,7 @@ from typing import Literal
 
 from tauledger.circuit import ADDED, GROUND, NO_CHANGE, Change, Circuit, Port, fold
 from tauledger.errors import Diagnostic, InputError, NetlistError
+from tauledger.netlist.conditions import counts, define_all
 from tauledger.netlist.diagnostics import Site, gather, nearest, visible
 from tauledger.netlist.draft import Draft, Row, check_all_used, check_finite, draft_for, finished
 from tauledger.netlist.flatten import Surroundings, flatten
@@ -19,7 +20,7 @@ from tauledger.netlist.netlist import Netlist
 from tauledger.netlist.options import option_settings, plain_value
 from tauledger.netlist.ports import choose_drive, choose_output, driven_as_written, parse_port
 from tauledger.netlist.references import check_references
-from tauledger.netlist.scopes import Binding, Scope, define, work_out_all
+from tauledger.netlist.scopes import Scope, work_out_all
 
 ABSOLUTE_ZERO_C = -273.15
 ROOM_C = 27.0
@@ -105,18 +106,15 @@ def instance_context(netlist: Netlist, circuit: Circuit, path: int) -> tuple[str
 
 
 def _global_parameters(netlist: Netlist, change: Change, scope: Scope, faults: list[Diagnostic]) -> None:
-    for number in netlist.top.parameters:
-        site = Site(netlist.files, netlist.cards[number])
-        for item in netlist.items[number]:
-            if isinstance(item, Setting):
-                define(scope, Binding(site, item))
     for name, value in change.parameters:
+        check_finite(name, value)
+        scope.fixed[fold(name)] = value
+    define_all(netlist, netlist.top, scope, ())
+    for name, _value in change.parameters:
         if fold(name) not in scope.bindings:
             known = [binding.setting.name.text for binding in scope.bindings.values()]
             otherwise = f"there are {', '.join(known)}" if known else "the netlist has no .param"
             raise InputError(f"no parameter is called {visible(name)!r}", nearest(name, known, otherwise=otherwise))
-        check_finite(name, value)
-        scope.fixed[fold(name)] = value
     work_out_all(scope, faults)
 
 
@@ -139,6 +137,8 @@ def _settings(netlist: Netlist, change: Change, scope: Scope, faults: list[Diagn
                 faults.extend(error.diagnostics)
     for number in netlist.temperatures:
         site = Site(netlist.files, netlist.cards[number])
+        if not counts(netlist, number, scope):
+            continue
         value = next(item for item in flattened(netlist.items[number][1:]) if not isinstance(item, Setting))
         try:
             values["temp"] = plain_value(site, value, scope)

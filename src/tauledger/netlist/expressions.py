@@ -14,6 +14,8 @@ from functools import cache
 from types import SimpleNamespace
 from typing import TYPE_CHECKING, Any
 
+from msgspec import Struct
+
 from tauledger.errors import NetlistError
 from tauledger.netlist.diagnostics import Site, nearest
 from tauledger.netlist.formulas import Call, Formula, Name, Number, Operation, Probe, Tree
@@ -69,6 +71,10 @@ FUNCTIONS: dict[str, tuple[int, Callable[..., float]]] = {
     "pow": (2, math.pow),
     "pwr": (2, _power),
     "ternary_fcn": (3, _choose),
+}
+POWERS = {
+    "pow": "pow(x,y) keeps the sign of x here, as ngspice does; in a behavioural source it takes |x|",
+    "pwr": "pwr(x,y) takes |x| here, as ngspice does; in a behavioural source it keeps the sign of x",
 }
 RANDOM = ("gauss", "agauss", "unif", "aunif", "limit")
 
@@ -162,8 +168,21 @@ def _check_signs(site: Site, tree: Tree, text: str, inner: int) -> None:
         _check_signs(site, part, text, inner)
 
 
-def evaluate(tree: Tree, parameter: Callable[[Name], float], fault: Callable[[Tree, str, str], NetlistError]) -> float:
-    """Evaluate a formula. parameter: gives the value of a name. fault: makes the error for a part of the tree.
+class Surrounding(Struct, frozen=True):
+    """What a formula needs of the place where it stands.
+
+    parameter: value of a name. call: value of a function of the user's own, None where there is none of that name.
+    fault: makes the error for a part of the tree. remark: takes what the reader must know about a part of it.
+    """
+
+    parameter: Callable[[Name], float]
+    call: Callable[[Call, Sequence[float]], float | None]
+    fault: Callable[[Tree, str, str], NetlistError]
+    remark: Callable[[str], None]
+
+
+def evaluate(tree: Tree, here: Surrounding) -> float:
+    """Evaluate a formula at its place.
 
     Raises NetlistError for an unknown function, a wrong number of arguments, and a result that is not finite.
     """
@@ -171,22 +190,29 @@ def evaluate(tree: Tree, parameter: Callable[[Name], float], fault: Callable[[Tr
         case Number(value=value):
             return value
         case Name():
-            return parameter(tree)
+            return here.parameter(tree)
         case Operation(operator="?", operands=(condition, yes, no)):
-            return evaluate(yes if evaluate(condition, parameter, fault) else no, parameter, fault)
+            return evaluate(yes if evaluate(condition, here) else no, here)
         case Operation(operator="negative", operands=(inner,)):
-            return -evaluate(inner, parameter, fault)
+            return -evaluate(inner, here)
         case Operation(operator="positive", operands=(inner,)):
-            return evaluate(inner, parameter, fault)
+            return evaluate(inner, here)
         case Operation(operator="!", operands=(inner,)):
-            return float(not evaluate(inner, parameter, fault))
+            return float(not evaluate(inner, here))
         case Operation(operator=sign, operands=(left, right)):
-            return _finite(
-                tree, _OPERATORS[sign], [evaluate(left, parameter, fault), evaluate(right, parameter, fault)], fault
-            )
+            values = [evaluate(left, here), evaluate(right, here)]
+            if sign in ("^", "**") and values[0] < 0.0:
+                here.remark(f"({values[0]:.6g}){sign}{values[1]:.6g} is taken as |x|^y, as ngspice does")
+            return _finite(tree, _OPERATORS[sign], values, here.fault)
         case Call(function=name, arguments=arguments):
-            function = _function(tree, name, len(arguments), fault)
-            return _finite(tree, function, [evaluate(part, parameter, fault) for part in arguments], fault)
+            values = [evaluate(part, here) for part in arguments]
+            own = here.call(tree, values)
+            if own is not None:
+                return own
+            if name.lower() in ("pow", "pwr") and len(values) == 2 and values[0] < 0.0:
+                here.remark(POWERS[name.lower()])
+            function = _function(tree, name, len(arguments), here.fault)
+            return _finite(tree, function, values, here.fault)
     raise TypeError(tree)
 
 

@@ -13,6 +13,7 @@ from tauledger.devices.catalogue import choose, families_of
 from tauledger.devices.family import Refusal, never_refused
 from tauledger.errors import Diagnostic, InputError, NetlistError
 from tauledger.netlist.behaviour import formula_of
+from tauledger.netlist.conditions import counts, define_all
 from tauledger.netlist.controlled import behavioural, controlled, coupling, line
 from tauledger.netlist.diagnostics import MOST_DIAGNOSTICS, Site, nearest, visible
 from tauledger.netlist.draft import MOST_ELEMENTS, MOST_INSTANCES, MOST_NESTED_INSTANCES, Draft, Row, node_number
@@ -31,7 +32,7 @@ from tauledger.netlist.letters import (
 from tauledger.netlist.models import ModelCard, model_name, read_model
 from tauledger.netlist.netlist import Definition, Netlist
 from tauledger.netlist.passive import impossible, passive
-from tauledger.netlist.scopes import Binding, Scope, define, find, known_names, work_out_all
+from tauledger.netlist.scopes import Binding, Scope, define, work_out_all
 from tauledger.netlist.sources import source
 
 # Letters whose elements ngspice does not multiply by the m of the instances around them.
@@ -64,7 +65,8 @@ def flatten(netlist: Netlist, draft: Draft, around: Surroundings, faults: list[D
     for number in around.definition.elements:
         site = Site(netlist.files, netlist.cards[number], around.context)
         try:
-            _element(netlist, draft, around, faults, number, site)
+            if counts(netlist, number, around.scope, around.context):
+                _element(netlist, draft, around, faults, number, site)
         except NetlistError as error:
             faults.extend(error.diagnostics)
         if len(faults) > 10 * MOST_DIAGNOSTICS:
@@ -204,14 +206,10 @@ def _formula(
         return None
     at = part.behaviour.at
 
-    def number(text: str) -> float | None:
-        return find(around.scope, fold(text))
-
     found = formula_of(
         site,
         part.behaviour,
-        parameter=number,
-        known=lambda: list(known_names(around.scope)),
+        scope=around.scope,
         node=lambda text: _node(netlist, draft, around, Word(text, at)),
         source=lambda text: around.prefix + text,
     )
@@ -286,7 +284,8 @@ def _visible_models(netlist: Netlist, around: Surroundings) -> Iterator[tuple[st
     here: Surroundings | None = around
     while here is not None:
         for number in here.definition.models:
-            yield model_name(netlist.items[number]), (here, number)
+            if counts(netlist, number, here.scope, here.context):
+                yield model_name(netlist.items[number]), (here, number)
         here = here.lexical
 
 
@@ -312,7 +311,11 @@ def _model(netlist: Netlist, draft: Draft, found: tuple[Surroundings, int], word
         if parameter in settable:
             values[parameter] = draft.changed_models.pop((owner, parameter))[2]
     card = replace(card, model=replace(card.model, parameters=tuple(values.items())))
-    twins = [other for other in home.definition.models if model_name(netlist.items[other]) == key]
+    twins = [
+        other
+        for other in home.definition.models
+        if model_name(netlist.items[other]) == key and counts(netlist, other, home.scope, home.context)
+    ]
     for twin in twins[1:]:
         says = f"model {name.text} is defined twice; the first definition counts, as in ngspice"
         home.scope.notes.append(ReadingNote(Site(netlist.files, netlist.cards[twin]).where, says))
@@ -412,20 +415,20 @@ def _scope(
     header = Site(netlist.files, netlist.cards[definition.card], context)
     for setting in definition.defaults:
         define(scope, Binding(header, setting))
-    for card in definition.parameters:
-        local = Site(netlist.files, netlist.cards[card], context)
-        for item in netlist.items[card]:
-            if isinstance(item, Setting):
-                define(scope, Binding(local, item))
     own = _own_names(netlist, definition)
     for setting in call.settings:
         name = fold(setting.name.text)
         if name in own:
             define(scope, Binding(site, setting, actual=True))
+        elif name != "m" and definition.defaults:
+            says = f"subcircuit {definition.name} has no parameter {setting.name.text}: read past, as ngspice does"
+            near = nearest(setting.name.text, own.values())
+            scope.notes.append(ReadingNote(site.where, f"{says}; {near}" if near else says))
         elif name != "m":
             message = f"subcircuit {definition.name} has no parameter {setting.name.text}"
             otherwise = f"its parameters: {', '.join(sorted(own.values()))}" if own else "it has none"
             raise site.fault(setting.name, message, nearest(setting.name.text, own.values(), otherwise=otherwise))
+    define_all(netlist, definition, scope, context)
     return scope
 
 

@@ -26,6 +26,20 @@ class Quoted(Struct, frozen=True):
     at: int
 
 
+class Function(Struct, frozen=True):
+    """A function of the user's own, f(x) = body: the body in each dialect in which it makes sense."""
+
+    name: Word
+    parameters: tuple[str, ...]
+    formula: Formula | None
+    behaviour: Behaviour | None
+
+    @property
+    def at(self) -> int:
+        """Offset of the name."""
+        return self.name.at
+
+
 Value = Word | Formula | Quoted | Behaviour
 
 
@@ -49,7 +63,7 @@ class Group(Struct, frozen=True):
     end: int
 
 
-Item = Value | Setting | Group
+Item = Value | Setting | Group | Function
 
 
 def width(item: Item) -> int:
@@ -65,6 +79,8 @@ def width(item: Item) -> int:
             return value.at + width(value) - name.at
         case Group(at=at, end=end):
             return end - at
+        case Function(name=name):
+            return len(name.text)
 
 
 def flattened(items: Iterable[Item]) -> Iterator[Value | Setting]:
@@ -72,5 +88,5 @@ def flattened(items: Iterable[Item]) -> Iterator[Value | Setting]:
     for item in items:
         if isinstance(item, Group):
             yield from flattened(item.items)
-        else:
+        elif not isinstance(item, Function):
             yield item

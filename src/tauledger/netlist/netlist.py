@@ -7,7 +7,7 @@ from __future__ import annotations
 
 from bisect import bisect_right
 
-from msgspec import Struct
+from msgspec import Struct, field
 
 from tauledger.circuit import Place, ReadingNote
 from tauledger.netlist.items import Item, Setting, Word
@@ -65,7 +65,8 @@ class Netlist(Struct, frozen=True):
     path: as typed. items: per card what its text holds, empty where the card is not read by place and keyword.
     globals: nodes named by `.global`, folded. options, temperatures: card numbers. requests: texts of analyses and
     outputs, which are hints only. past: what was read past, by word and count. sha256: over the bytes of all files in
-    the order in which they were read.
+    the order in which they were read. blocks: the cards of `.if`, `.elseif`, `.else` of each block; within: for a card
+    in such blocks their numbers and those of the branches, outermost first. nodesets: card numbers of `.nodeset`.
     """
 
     path: str
@@ -81,6 +82,9 @@ class Netlist(Struct, frozen=True):
     past: tuple[tuple[str, int], ...]
     sha256: str
     notes: tuple[ReadingNote, ...] = ()
+    blocks: tuple[tuple[int, ...], ...] = ()
+    within: dict[int, tuple[tuple[int, int], ...]] = field(default_factory=dict)
+    nodesets: tuple[int, ...] = ()
 
 
 def position(files: tuple[SourceFile, ...], card: Card, offset: int) -> Place:

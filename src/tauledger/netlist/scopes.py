@@ -7,17 +7,24 @@ means the caller's); where that differs from the caller's reading, a note says s
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+import re
+from collections import Counter
+from collections.abc import Callable, Iterator, Mapping, Sequence
 
 from msgspec import Struct, field
 
 from tauledger.circuit import ReadingNote, fold
 from tauledger.errors import Diagnostic, NetlistError
 from tauledger.netlist.diagnostics import Site, nearest
-from tauledger.netlist.expressions import evaluate
-from tauledger.netlist.formulas import Formula, Name, Tree, names
-from tauledger.netlist.items import Quoted, Setting, Value, Word, width
+from tauledger.netlist.expressions import Surrounding, evaluate
+from tauledger.netlist.formulas import Call, Formula, Name, Tree, names
+from tauledger.netlist.items import Function, Quoted, Setting, Value, Word, width
 from tauledger.netlist.numbers import read_number
+
+MOST_NESTED_CALLS = 30
+MOST_CALLS = 50_000
+
+_MIL = re.compile(r"[\d.]mil", re.IGNORECASE)
 
 
 class Binding(Struct, frozen=True):
@@ -31,7 +38,9 @@ class Binding(Struct, frozen=True):
 class Scope(Struct):
     """The parameters of one instance. values fills as names are asked for; pending holds those being worked out.
 
-    fixed: values that a Change sets. notes and pending are shared by all scopes of one elaboration.
+    fixed: values that a Change sets. functions: the user's own, by folded name. choices: the branch that
+    counts, by number of the `.if` block. notes, pending and calls (the functions
+    that are being worked out) are shared by all scopes of one elaboration.
     """
 
     outer: Scope | None = None
@@ -40,21 +49,36 @@ class Scope(Struct):
     values: dict[str, float] = field(default_factory=dict)
     pending: list[tuple[int, str, Binding]] = field(default_factory=list)
     notes: list[ReadingNote] = field(default_factory=list)
+    functions: dict[str, tuple[Site, Function]] = field(default_factory=dict)
+    calls: Counter[str] = field(default_factory=Counter)
+    choices: dict[int, int] = field(default_factory=dict)
 
     def inner(self) -> Scope:
         """Open the scope of an instance called from here."""
-        return Scope(outer=self, pending=self.pending, notes=self.notes)
+        return Scope(outer=self, pending=self.pending, notes=self.notes, calls=self.calls)
 
 
 def define(scope: Scope, binding: Binding) -> None:
-    """Add a definition; of two in one scope the last counts, with a note."""
+    """Add a definition; one given on an X card wins, else of two in one scope the last counts, with a note."""
     name = fold(binding.setting.name.text)
-    if name in scope.bindings and not binding.actual and not scope.bindings[name].actual:
+    if name in scope.bindings and scope.bindings[name].actual and not binding.actual:
+        return
+    if name in scope.bindings and not binding.actual:
         first = scope.bindings[name].site
         if first.card is not binding.site.card or first.card.text.startswith("."):
             says = f"parameter {binding.setting.name.text} is set again; the last value counts, as in ngspice"
             scope.notes.append(ReadingNote(binding.site.where, says))
     scope.bindings[name] = binding
+
+
+def find_function(scope: Scope, name: str) -> tuple[Site, Function] | None:
+    """Give a function of the user's own (folded name) as seen from a scope, or None where nobody defines it."""
+    here: Scope | None = scope
+    while here is not None:
+        if name in here.functions:
+            return here.functions[name]
+        here = here.outer
+    return None
 
 
 def known_names(scope: Scope) -> Iterator[str]:
@@ -197,8 +221,11 @@ def _read_in(site: Site, value: Value, scope: Scope, *, own: str) -> float:
     return number_of(site, value, scope)
 
 
-def _formula(site: Site, formula: Formula, scope: Scope, *, own: str) -> float:
-    """Evaluate a formula in a scope; the name `own` is looked up outside of it."""
+def _formula(
+    site: Site, formula: Formula, scope: Scope, *, own: str, arguments: Mapping[str, float] | None = None
+) -> float:
+    """Evaluate a formula in a scope; the name `own` is looked up outside of it. arguments: of the function it is of."""
+    given = arguments or {}
 
     def fault(tree: Tree, message: str, hint: str) -> NetlistError:
         wide = len(tree.text) if isinstance(tree, Name) else 1
@@ -206,10 +233,48 @@ def _formula(site: Site, formula: Formula, scope: Scope, *, own: str) -> float:
 
     def parameter(name: Name) -> float:
         key = fold(name.text)
+        if key in given:
+            return given[key]
         start = scope.outer if key == own and scope.outer is not None else scope
         found = find(start, key)
         if found is None:
             raise fault(name, f"no parameter is called {name.text!r}", nearest(name.text, known_names(scope)))
         return found
 
-    return evaluate(formula.tree, parameter, fault)
+    def call(tree: Call, values: Sequence[float]) -> float | None:
+        known = find_function(scope, fold(tree.function))
+        if known is None:
+            return None
+        home, function = known
+        check_call(scope, tree, function, lambda message, hint: fault(tree, message, hint))
+        if function.formula is None:
+            raise fault(tree, f"{function.name.text} is made of voltages or currents", "only a source can use it")
+        bound = dict(zip(map(fold, function.parameters), values, strict=True))
+        value = _formula(home, function.formula, scope, own="", arguments=bound)
+        scope.calls[tree.function] -= 1
+        return value
+
+    def remark(says: str) -> None:
+        note = ReadingNote(site.where, says)
+        if note not in scope.notes[-20:]:
+            scope.notes.append(note)
+
+    if _MIL.search(formula.text):
+        remark("mil inside a formula is m (1e-3), as ngspice reads it; outside it is 25.4e-6")
+    return evaluate(formula.tree, Surrounding(parameter, call, fault, remark))
+
+
+def check_call(scope: Scope, tree: Call, function: Function, fault: Callable[[str, str], NetlistError]) -> None:
+    """Count a call of a user's function; raise NetlistError for a wrong number of arguments and for endless calls.
+
+    Whoever calls takes one off `Scope.calls` when the function is worked out.
+    """
+    name, count = function.name.text, len(function.parameters)
+    if len(tree.arguments) != count:
+        raise fault(f"{name} takes {count} argument{'' if count == 1 else 's'}, not {len(tree.arguments)}", "")
+    scope.calls[tree.function] += 1
+    scope.calls[""] += 1
+    if scope.calls[tree.function] > MOST_NESTED_CALLS:
+        raise fault(f"{name} calls itself", "a function cannot be defined by itself")
+    if scope.calls[""] > MOST_CALLS:
+        raise fault(f"the netlist calls functions more than {MOST_CALLS} times", "write parameters instead")

@@ -11,7 +11,7 @@ from tauledger.circuit import fold
 from tauledger.netlist.diagnostics import Site
 from tauledger.netlist.elements import multiplicity
 from tauledger.netlist.formulas import Formula
-from tauledger.netlist.items import Group, Item, Setting, Value, Word, flattened
+from tauledger.netlist.items import Function, Group, Item, Setting, Value, Word, flattened
 from tauledger.netlist.letters import SOURCES, TIME_FUNCTIONS
 from tauledger.netlist.numbers import read_number
 from tauledger.netlist.scopes import Scope, find, number_of
@@ -70,7 +70,9 @@ def source(site: Site, items: tuple[Item, ...], letter: str, scope: Scope) -> So
         elif word in ("r", "td") and isinstance(item, Setting) and at_start is not None:
             # Repetition and delay of a piecewise linear function do not touch its value at t = 0.
             rest = rest[1:]
-        elif len(rest) == len(flat) - 2 and not isinstance(item, Group | Setting) and _is_number(item, scope):
+        elif (
+            len(rest) == len(flat) - 2 and not isinstance(item, Group | Setting | Function) and _is_number(item, scope)
+        ):
             dc, rest = number_of(site, item, scope), rest[1:]
         else:
             raise _unexpected(site, item, word, letter)
@@ -111,7 +113,12 @@ def _values(rest: list[Item], most: int, scope: Scope) -> tuple[list[Value], lis
     elif rest and isinstance(rest[0], Group):
         inside = [item for item in flattened(rest[0].items) if not isinstance(item, Setting)]
         return inside, rest[1:]
-    while rest and len(values) < most and not isinstance(rest[0], Group | Setting) and _is_number(rest[0], scope):
+    while (
+        rest
+        and len(values) < most
+        and not isinstance(rest[0], Group | Setting | Function)
+        and _is_number(rest[0], scope)
+    ):
         values.append(rest[0])
         rest = rest[1:]
     return values, rest

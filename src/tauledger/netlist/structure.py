@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections import Counter
 from collections.abc import Callable
 
@@ -9,9 +10,10 @@ from msgspec import Struct, field
 
 from tauledger.circuit import ReadingNote, fold
 from tauledger.errors import Diagnostic, NetlistError
-from tauledger.netlist.assignments import parse_assignments
+from tauledger.netlist.assignments import parse_assignments, parse_functions
 from tauledger.netlist.cards import parse_card, parse_element
 from tauledger.netlist.diagnostics import Site, gather, nearest, visible
+from tauledger.netlist.expressions import parse_formula
 from tauledger.netlist.items import Item, Setting, Word, flattened
 from tauledger.netlist.letters import READ, TIME_FUNCTIONS
 from tauledger.netlist.netlist import TOP, Card, Definition, Netlist, SourceFile
@@ -22,10 +24,12 @@ OUTPUTS = {".print": ".print", ".plot": ".plot", ".save": ".save", ".probe": ".p
 OUTPUTS |= {".measure": ".meas", ".four": ".four", ".width": ".width"}
 WITHOUT_EFFECT = frozenset({".ic", ".csparam"})
 OPTIONS = frozenset({".options", ".option", ".opt"})
-NOT_YET = frozenset([".lib", ".endl", ".func", ".if", ".elseif", ".else", ".endif", ".nodeset"])
 STRUCTURE = frozenset([".subckt", ".macro", ".ends", ".eom", ".model", ".param", ".global", ".temp", ".end"])
-STRUCTURE |= {".include", ".control"}
-KNOWN = ANALYSES | set(OUTPUTS) | WITHOUT_EFFECT | OPTIONS | NOT_YET | STRUCTURE
+STRUCTURE |= {".include", ".control", ".lib", ".endl", ".func", ".if", ".elseif", ".else", ".endif", ".nodeset"}
+KNOWN = ANALYSES | set(OUTPUTS) | WITHOUT_EFFECT | OPTIONS | STRUCTURE
+CONDITIONS = frozenset([".if", ".elseif", ".else", ".endif"])
+# What ngspice collects before it looks at conditions.
+UNCONDITIONAL = frozenset([".param", ".func", ".subckt", ".macro", ".global", ".options", ".option", ".opt"])
 MOST_NESTED_DEFINITIONS = 40
 
 
@@ -40,6 +44,7 @@ class _Open(Struct):
     parameters: list[int] = field(default_factory=list)
     models: list[int] = field(default_factory=list)
     definitions: list[Definition] = field(default_factory=list)
+    branches: list[tuple[int, int]] = field(default_factory=list)
 
     def closed(self) -> Definition:
         return Definition(
@@ -66,6 +71,9 @@ class _Sorting(Struct):
     past: Counter[str] = field(default_factory=Counter)
     notes: list[ReadingNote] = field(default_factory=list)
     ended: str = ""
+    blocks: list[list[int]] = field(default_factory=list)
+    within: dict[int, tuple[tuple[int, int], ...]] = field(default_factory=dict)
+    nodesets: list[int] = field(default_factory=list)
 
 
 def structure(
@@ -94,6 +102,9 @@ def structure(
     for unclosed in sorting.open[1:]:
         site = Site(files, cards[unclosed.card])
         found.extend(site.fault(0, "this subcircuit is never closed", "close it with .ends", wide=7).diagnostics)
+    if not sorting.open[1:]:
+        for block, _ in sorting.open[0].branches:
+            found.extend(_never_ended(Site(files, cards[sorting.blocks[block][0]])).diagnostics)
     if found:
         raise gather(found, files)
     for script in scripts:
@@ -113,6 +124,9 @@ def structure(
         past=tuple(sorting.past.items()),
         sha256="",
         notes=tuple(sorting.notes),
+        blocks=tuple(map(tuple, sorting.blocks)),
+        within=sorting.within,
+        nodesets=tuple(sorting.nodesets),
     )
 
 
@@ -121,9 +135,17 @@ def _sort(sorting: _Sorting, number: int, site: Site) -> tuple[Item, ...]:
     text = site.card.text
     word = text.split(maxsplit=1)[0]
     head = word.lower()
+    if "(" in head and head.split("(")[0] in CONDITIONS:
+        head = head.split("(")[0]
     if sorting.ended and head != ".end":
         sorting.notes.append(ReadingNote(site.where, f"cards behind .end ({sorting.ended}) are read, as ngspice does"))
         sorting.ended = ""
+    if sorting.open[-1].branches and head in UNCONDITIONAL:
+        which = " (the first of its name)" if head in (".subckt", ".macro") else ""
+        says = f"{head} inside .if counts whether the condition holds or not{which}, as in ngspice"
+        sorting.notes.append(ReadingNote(site.where, says))
+    elif sorting.open[-1].branches and head not in CONDITIONS:
+        sorting.within[number] = tuple(sorting.open[-1].branches)
     if not head.startswith("."):
         sorting.open[-1].elements.append(number)
         if word[0].upper() not in READ:
@@ -142,8 +164,6 @@ def _sort(sorting: _Sorting, number: int, site: Site) -> tuple[Item, ...]:
     if head in WITHOUT_EFFECT:
         sorting.past[head] += 1
         return ()
-    if head in NOT_YET:
-        raise site.fault(0, f"{head} is not supported by this version", wide=len(word))
     if head in OPTIONS:
         items = parse_card(site)
         settings = option_settings(site, items)
@@ -197,8 +217,11 @@ def _subckt(sorting: _Sorting, number: int, site: Site) -> tuple[Item, ...]:
 def _ends(sorting: _Sorting, _number: int, site: Site) -> tuple[Item, ...]:
     if len(sorting.open) == 1:
         raise site.fault(0, "no subcircuit is open here", "delete this line, or write .subckt before", wide=5)
+    open_blocks = sorting.open[-1].branches
     definition = sorting.open.pop().closed()
     enclosing = sorting.open[-1]
+    if open_blocks:
+        raise site.fault(0, "an .if of this subcircuit is not closed", "close it with .endif", wide=5)
     twin = next((other for other in enclosing.definitions if fold(other.name) == fold(definition.name)), None)
     if twin is not None:
         says = f"subcircuit {definition.name} is defined twice; the first definition counts, as in ngspice"
@@ -222,6 +245,65 @@ def _param(sorting: _Sorting, number: int, site: Site) -> tuple[Item, ...]:
     items = parse_assignments(site)
     sorting.open[-1].parameters.append(number)
     return items
+
+
+def _func(sorting: _Sorting, number: int, site: Site) -> tuple[Item, ...]:
+    items = parse_functions(site)
+    sorting.open[-1].parameters.append(number)
+    return items
+
+
+def _if(sorting: _Sorting, number: int, site: Site) -> tuple[Item, ...]:
+    branches = sorting.open[-1].branches
+    if len(branches) >= MOST_NESTED_DEFINITIONS:
+        raise site.fault(0, f".if blocks are nested more than {MOST_NESTED_DEFINITIONS} deep", wide=3)
+    branches.append((len(sorting.blocks), 0))
+    sorting.blocks.append([number])
+    return _condition(site)
+
+
+def _branch(sorting: _Sorting, number: int, site: Site) -> tuple[Item, ...]:
+    """Begin the next branch of the innermost block."""
+    word = re.split(r"[\s(]", site.card.text, maxsplit=1)[0]
+    branches = sorting.open[-1].branches
+    if not branches:
+        raise site.fault(0, f"no .if is open before this {word.lower()}", wide=len(word))
+    block, branch = branches[-1]
+    branches[-1] = (block, branch + 1)
+    sorting.blocks[block].append(number)
+    return (Word(word, 0),) if word.lower() == ".else" else _condition(site)
+
+
+def _endif(sorting: _Sorting, _number: int, site: Site) -> tuple[Item, ...]:
+    if not sorting.open[-1].branches:
+        raise site.fault(0, "no .if is open here", "delete this line", wide=6)
+    sorting.open[-1].branches.pop()
+    return ()
+
+
+def _condition(site: Site) -> tuple[Item, ...]:
+    """Read the condition of `.if` and `.elseif`, which stands in parentheses."""
+    text = site.card.text.rstrip()
+    word = re.match(r"\.\w+", text)
+    assert word is not None
+    start = len(text) - len(text[word.end() :].lstrip())
+    if text[start : start + 1] != "(" or text[-1] != ")":
+        raise site.fault(min(start, len(text)), "a condition stands in parentheses", f"write {word.group()} (a > 1)")
+    return (Word(word.group(), 0), parse_formula(site, text[start + 1 : -1], start, start + 1))
+
+
+def _never_ended(site: Site) -> NetlistError:
+    return site.fault(0, "this .if is never closed", "close it with .endif", wide=3)
+
+
+def _nodeset(sorting: _Sorting, number: int, site: Site) -> tuple[Item, ...]:
+    items = parse_card(site)
+    sorting.nodesets.append(number)
+    return items
+
+
+def _endl(_sorting: _Sorting, _number: int, site: Site) -> tuple[Item, ...]:
+    raise site.fault(0, "no section of a library is open here", "delete this line", wide=5)
 
 
 def _global(sorting: _Sorting, _number: int, site: Site) -> tuple[Item, ...]:
@@ -265,6 +347,13 @@ _DOT_CARDS: dict[str, Callable[[_Sorting, int, Site], tuple[Item, ...]]] = {
     ".eom": _ends,
     ".model": _model,
     ".param": _param,
+    ".func": _func,
+    ".if": _if,
+    ".elseif": _branch,
+    ".else": _branch,
+    ".endif": _endif,
+    ".nodeset": _nodeset,
+    ".endl": _endl,
     ".global": _global,
     ".temp": _temp,
     ".end": _end,
