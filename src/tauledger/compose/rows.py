@@ -9,6 +9,7 @@ from tauledger.hand.estimate import InnerLine, LookingIn, MillerTerm, SignalNode
 from tauledger.hand.halves import counted
 from tauledger.network.constants import OpenConstant
 from tauledger.network.lower import ShortConstant
+from tauledger.network.reactances import REACTIVE
 from tauledger.network.recompute import EdgeFrequencies
 from tauledger.network.shares import Shares
 from tauledger.numbers import Numbers
@@ -29,7 +30,6 @@ from tauledger.record import (
     ZeroFacts,
 )
 
-REACTIVE = ("capacitance", "inductance", "transcapacitance")
 # Owners below one per cent of a pole are rounding to a reader.
 OWNS_SOMETHING = 0.01
 

@@ -158,7 +158,8 @@ def _describe(circuit: EquivalentCircuit, node: str) -> tuple[str, str, str]:
     owner = next(iter(by_word.values()))[0] if by_word else ""
     name = node_name(circuit, node)
     if not phrases:
-        return "node", owner, f"node {name}"
+        inside, _, state = name.partition("'")
+        return ("node", inside, f"inside {inside}") if state.isdigit() else ("node", owner, f"node {name}")
     return ", ".join(words), owner, f"{', '.join(phrases)} ({name})"
 
 

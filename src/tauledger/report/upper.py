@@ -10,11 +10,10 @@ from tauledger.report.layout import Block, Prose, Row, Section, Table
 from tauledger.report.wording import (
     NO_NUMBER,
     SOLVED,
+    amount,
     move,
-    nominal,
     number,
     part_titles,
-    part_unit,
     share,
 )
 from tauledger.report.working import node_title, workings
@@ -178,8 +177,7 @@ def _share_row(alike: list[tuple[PartRow, float]], titles: Mapping[str, str], f_
     part, value = alike[0]
     less = part.ten_percent_less.f_high_hz
     change = f" ({move(less / f_high - 1.0)})" if less is not None and f_high else ""
-    amount = nominal(part.value, part_unit(part.kind)) if part.owner == part.name else number(part.value, "F", 3)
-    return Row((_each(alike, titles), amount, share(value), number(less, "Hz") + change))
+    return Row((_each(alike, titles), amount(part), share(value), number(less, "Hz") + change))
 
 
 def _each(alike: list[tuple[PartRow, float]], titles: Mapping[str, str]) -> str:

@@ -13,6 +13,7 @@ _UNITS = {"ohm": "Ω"}
 _GREEK = {"pi": "π", "mu": "μ", "tau": "τ", "beta": "β"}
 _RATIOS = ("", "V/V", "A/A")
 _PART_UNIT = {"capacitance": "F", "transcapacitance": "F", "inductance": "H", "C": "F", "L": "H", "R": "Ω"}
+_PART_UNIT |= {"mutual inductance": "H"}
 
 EDGE = {"f_high": "f_H", "f_low": "f_L"}
 
@@ -33,6 +34,17 @@ def number(value: float | None, unit: str, digits: int = 4) -> str:
 def nominal(value: float, unit: str) -> str:
     """Write the value of a part as one would on a schematic: "50 pF", no trailing zeros."""
     return engineering(value, _UNITS.get(unit, unit), 3 if abs(value) == 0.0 else 4, zeros=False)
+
+
+def amount(part: PartRow) -> str:
+    """Write a part's value: as on the schematic where it is a card of its own, with three digits else.
+
+    The remainder of a fitted device is no single value: a dash.
+    """
+    if part.kind == "block":
+        return NO_NUMBER
+    unit = part_unit(part.kind)
+    return nominal(part.value, unit) if part.owner == part.name else number(part.value, unit, 3)
 
 
 def part_unit(kind: str) -> str:
@@ -79,6 +91,8 @@ def part_title(name: str, owner: str) -> str:
     label = name.removeprefix(owner).removeprefix(".")
     if not label or not name.startswith(owner):
         return name
+    if label == "inside":
+        return f"inside {owner}"
     if label == "cexbc":
         return f"dQ_be/dV_bc of {owner}"
     return f"{symbol(label)} of {owner}"
