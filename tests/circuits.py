@@ -1,7 +1,9 @@
 """Circuits for tests, written as short cards, without the netlist room.
 
-`board("VIN in 0 1", "R1 in out 1k", ...)` gives a Circuit: R, C, L, V, I, G and Q cards with plain numbers or short
-suffixes (meg for 10^6), Q and I with name=value parameters. Voltage and current sources take their DC value.
+`board("VIN in 0 1", "R1 in out 1k", ...)` gives a Circuit with plain numbers or short suffixes (meg for 10^6), and
+name=value parameters. Voltage and current sources take their DC value. E, F, G, H are "E1 a b c d gain" (F, H: the
+name of a source in the place of the control nodes) or "E1 a b POLY c d e f : p0 p1 ..."; K is "K1 L1 L2 0.9". An R, C
+or L with a model or parameters, or a device, is an Element: nodes, the model's name, parameters; flags are bare.
 """
 
 from __future__ import annotations
@@ -75,20 +77,39 @@ def board(
         plain = [word for word in words if "=" not in word]
         parameters = [(fold(key), number(value)) for key, value in given.items()]
         model = ""
-        match letter:
-            case "R" | "C" | "L":
-                passives.append((letter, name, node(plain[0]), node(plain[1]), number(plain[2]), card))
-                continue
-            case "V" | "I":
-                ends, parameters = plain[:2], [("dc", number(plain[2])), *parameters]
-            case "G":
-                ends, parameters = plain[:4], [("gain", number(plain[4])), *parameters]
-            case "Q":
-                ends, model = plain[:-1], plain[-1]
-            case _:
-                raise ValueError(line)
+        references: tuple[str, ...] = ()
+        polynomial: tuple[float, ...] = ()
+        known = {fold(m.name): m.name for m in models}
+        flags = [word for word in plain if word in ("on", "off")]
+        plain = [word for word in plain if word not in flags]
+        parameters += [(flag, 1.0) for flag in flags]
+        if letter in "EFGH" and "POLY" in plain:
+            at, colon = plain.index("POLY"), plain.index(":")
+            ends, controls = plain[:at], plain[at + 1 : colon]
+            polynomial = tuple(number(word) for word in plain[colon + 1 :])
+            ends, references = (ends + controls, ()) if letter in "EG" else (ends, tuple(controls))
+        elif letter in "FH":
+            ends, references, parameters = plain[:2], (plain[2],), [("gain", number(plain[3])), *parameters]
+        elif letter in "EG":
+            ends, parameters = plain[:4], [("gain", number(plain[4])), *parameters]
+        elif letter == "K":
+            ends, references, parameters = [], (plain[0], plain[1]), [("coupling", number(plain[2]))]
+        elif letter in "VI":
+            ends, parameters = plain[:2], [("dc", number(plain[2])), *parameters]
+        elif letter in "RCL" and len(plain) == 3 and not parameters and fold(plain[2]) not in known:
+            passives.append((letter, name, node(plain[0]), node(plain[1]), number(plain[2]), card))
+            continue
+        elif letter in "RCL":
+            ends = plain[:2]
+            model = next((known[fold(word)] for word in plain[2:] if fold(word) in known), "")
+            values = [word for word in plain[2:] if fold(word) not in known]
+            parameters = [*(("value", number(word)) for word in values), *parameters]
+        else:
+            ends, model = plain[:-1], plain[-1]
+            if letter == "W":
+                ends, references = plain[:2], (plain[2],)
         numbers = tuple(node(end) for end in ends)
-        elements.append(Element(letter, name, numbers, model, tuple(parameters), card, 0))
+        elements.append(Element(letter, name, numbers, model, tuple(parameters), card, 0, references, polynomial))
     kinds = {fold(element.name): element.letter for element in elements}
     return Circuit(
         title="a board",

@@ -39,7 +39,7 @@ def test_every_line_of_a_deck_is_made_of_whitelisted_words() -> None:
     number = r"-?\d+(\.\d+)?(e[-+]\d+)?"
     word = rf"(0|[a-z]+\d+|dc|ac|off|{number}|[a-z]\w*={number})"
     card = re.compile(rf"[a-z]\d+( {word})+")
-    model = re.compile(rf"\.model model\d+ (npn|pnp)\(level=1( [a-z]\w*={number})*\)")
+    model = re.compile(rf"\.model model\d+ (npn|pnp)\([a-z]\w*={number}( [a-z]\w*={number})*\)")
     options = re.compile(rf"\.options( [a-z]+={number})+")
     assert deck[0] == "generated circuit"
     assert deck[-1] == ".end"

@@ -3,12 +3,15 @@
 from __future__ import annotations
 
 from tauledger.circuit import Circuit, Element, Model
-from tauledger.devices.controlled import TRANSCONDUCTANCE
+from tauledger.devices.controlled import CURRENT_GAIN, TRANSCONDUCTANCE, TRANSRESISTANCE, VOLTAGE_GAIN
+from tauledger.devices.coupling import COUPLING
 from tauledger.devices.family import Device, Family, Linearised, Refusal
+from tauledger.devices.fitted import FITTED
 from tauledger.devices.gummel_poon import GUMMEL_POON
 from tauledger.devices.parts import Part
 from tauledger.devices.passives import CAPACITOR, INDUCTOR, RESISTOR, passive_part
 from tauledger.devices.sources import CURRENT_SOURCE, VOLTAGE_SOURCE
+from tauledger.devices.switches import CURRENT_SWITCH, VOLTAGE_SWITCH
 from tauledger.errors import InputError
 from tauledger.solution import Bias, Isolation, Observation
 
@@ -18,8 +21,15 @@ FAMILIES: tuple[Family, ...] = (
     INDUCTOR,
     VOLTAGE_SOURCE,
     CURRENT_SOURCE,
+    VOLTAGE_GAIN,
+    CURRENT_GAIN,
     TRANSCONDUCTANCE,
+    TRANSRESISTANCE,
+    COUPLING,
+    VOLTAGE_SWITCH,
+    CURRENT_SWITCH,
     GUMMEL_POON,
+    *FITTED,
 )
 
 
@@ -39,16 +49,21 @@ def choose(element: Element, model: Model | None) -> Family | Refusal:
     Families are asked in the order of `FAMILIES`: those whose letter, model type and level fit, the first that does not
     refuse. Where all of them refuse, the last one's reason counts: it is the one that could do most.
     """
-    fitting = [family for family in families_of(element.letter) if _fits(family, model)]
-    if not fitting:
+    families = fitting(element, model)
+    if not families:
         return Refusal("level", *_no_family(element, model))
     refusal: Refusal | None = None
-    for family in fitting:
+    for family in families:
         refusal = family.refuse(element, model)
         if refusal is None:
             return family
     assert refusal is not None
     return refusal
+
+
+def fitting(element: Element, model: Model | None) -> tuple[Family, ...]:
+    """Give the families whose letter, model type and level fit to this element, whether or not they refuse it."""
+    return tuple(family for family in families_of(element.letter) if _fits(family, model))
 
 
 def _fits(family: Family, model: Model | None) -> bool:

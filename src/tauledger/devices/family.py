@@ -53,7 +53,8 @@ class Device(Struct, frozen=True):
     kind: "npn", "pnp", … region: in whole words ("active", "saturated", "off", "reversed").
     figures: (symbol, value in SI units) in the order in which a table shows them: i_c, v_ce, gm, r_pi, r_o,
     c_pi, c_mu, f_t.
-    without_charge: the model gives this device no capacitance at all.
+    without_charge: the model gives this device no capacitance at all. remarks: what a reader must know about how it was
+    rebuilt, in whole sentences.
     """
 
     name: str
@@ -64,6 +65,7 @@ class Device(Struct, frozen=True):
     cell: Transconductor | None
     parts: tuple[Part, ...]
     without_charge: bool = False
+    remarks: tuple[str, ...] = ()
 
 
 class Refusal(Struct, frozen=True):
@@ -73,6 +75,11 @@ class Refusal(Struct, frozen=True):
     parameter: str
     reason: str
     hint: str = ""
+
+
+def as_on_the_card(element: Element, _model: Model | None) -> tuple[tuple[str, float], ...]:
+    """The `as_written` of a family whose card the engine takes as it is."""
+    return element.parameters
 
 
 def never_isolated(_circuit: Circuit, _element: Element, _bias: Bias) -> Isolation | None:
@@ -92,6 +99,8 @@ class Family(Struct, frozen=True):
     observe: what to read from the engine, or None for nothing. linearise: element at its bias → parts and figures.
     refuse: a Refusal where this element or model cannot be rebuilt, else None. isolate: how the instance must be
     measured alone, once the readings are there, or None. model_optional: the element may stand without a model.
+    as_written: the parameters that the engine is given in the place of those on the card. flags: model parameters that
+    stand without a value.
     """
 
     letter: str
@@ -107,6 +116,8 @@ class Family(Struct, frozen=True):
     model_parameters: frozenset[str] = frozenset()
     isolate: Callable[[Circuit, Element, Bias], Isolation | None] = never_isolated
     model_optional: bool = False
+    as_written: Callable[[Element, Model | None], tuple[tuple[str, float], ...]] = as_on_the_card
+    flags: frozenset[str] = frozenset()
 
 
 class Linearised(Struct, frozen=True):

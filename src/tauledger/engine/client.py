@@ -152,13 +152,13 @@ class Engine:
         import numpy as np
 
         from tauledger.circuit import fold
-        from tauledger.engine.deck import WITH_BRANCH_CURRENT
+        from tauledger.engine.deck import has_branch_current
         from tauledger.engine.verdict import judge
         from tauledger.solution import Bias, EngineIdentity
 
         passives = circuit.passives
-        letters = [*zip(passives.name, passives.kind, strict=True), *((e.name, e.letter) for e in circuit.elements)]
-        branches = [name for name, letter in letters if letter in WITH_BRANCH_CURRENT]
+        branches = [name for name, kind in zip(passives.name, passives.kind, strict=True) if kind == "L"]
+        branches += [element.name for element in circuit.elements if has_branch_current(element)]
         devices = [(deck.elements[fold(o.element)], [*o.readings, *o.optional]) for o in observations]
         vectors = [*deck.nodes[1:], *(f"{deck.elements[fold(name)]}#branch" for name in branches)]
         answer = self._ask({"do": "bias", "deck": deck.text, "vectors": vectors, "readings": devices})

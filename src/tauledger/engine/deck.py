@@ -11,15 +11,20 @@ from collections.abc import Iterable, Mapping
 
 from msgspec import Struct
 
-from tauledger.circuit import Circuit, Element, Model, fold
-from tauledger.devices.catalogue import FAMILIES, family_of
+from tauledger.circuit import Apply, Circuit, Element, Model, Number, fold
+from tauledger.devices.catalogue import FAMILIES, fitting
+from tauledger.devices.polynomial import as_formula
+from tauledger.engine.formula import written
 from tauledger.errors import EngineError
 
 TITLE = "generated circuit"
 # Measured: gm is right to 1e-12 from reltol = 1e-5 on, and wrong by 1.7e-3 at ngspice's default of 1e-3.
 TIGHT = (("reltol", 1e-6), ("abstol", 1e-15), ("vntol", 1e-9))
 OPTIONS = {"gmin": 1e-12}
-WITH_BRANCH_CURRENT = ("V", "L")
+WITH_BRANCH_CURRENT = ("V", "L", "E", "H")
+CONTROLLED = ("E", "F", "G", "H", "B")
+# Other names that the reader takes for the types of resistors, capacitors and inductors.
+SHORT_TYPES = {"res": "r", "cap": "c", "ind": "l"}
 
 
 class Deck(Struct, frozen=True):
@@ -43,8 +48,9 @@ def write_deck(circuit: Circuit, *, tight: bool = True) -> Deck:
     """
     nodes = ("0", *(f"n{k}" for k in range(1, len(circuit.nodes))))
     passives = circuit.passives
-    names = [*zip(passives.kind, passives.name, strict=True), *((e.letter, e.name) for e in circuit.elements)]
+    names = [*zip(passives.kind, passives.name, strict=True), *((_letter(e), e.name) for e in circuit.elements)]
     generated = [f"{letter.lower()}{k}" for k, (letter, _) in enumerate(names, start=1)]
+    elements = {fold(name): made for (_, name), made in zip(names, generated, strict=True)}
     models = {fold(model.name): f"model{k}" for k, model in enumerate(circuit.models, start=1)}
 
     cards = [TITLE, _options(circuit, tight)]
@@ -55,19 +61,42 @@ def write_deck(circuit: Circuit, *, tight: bool = True) -> Deck:
         cards.append(f"{name} {a} {b} {_number(value, passives.name[k])}")
     amplitudes = {fold(drive.source): drive.amplitude for drive in circuit.drive}
     for name, element in zip(generated[len(passives) :], circuit.elements, strict=True):
-        cards.append(" ".join((name, *(nodes[node] for node in element.nodes), *_values(element, models, amplitudes))))
+        words = _Words(circuit, nodes, elements, models, amplitudes)
+        cards.append(" ".join((name, *_behind_name(element, words))))
     cards += [_model(models[fold(model.name)], model) for model in circuit.models]
     cards.append(".end")
     return Deck(
         text="\n".join(cards) + "\n",
         nodes=nodes,
-        elements={fold(name): made for (_, name), made in zip(names, generated, strict=True)},
+        elements=elements,
         says={
             **dict(zip(nodes[1:], circuit.nodes[1:], strict=True)),
             **{made: name for (_, name), made in zip(names, generated, strict=True)},
             **{models[fold(model.name)]: model.name for model in circuit.models},
         },
     )
+
+
+class _Words(Struct, frozen=True):
+    """What the cards of a deck are made of: generated names of nodes, elements and models, and the AC amplitudes."""
+
+    circuit: Circuit
+    nodes: tuple[str, ...]
+    elements: Mapping[str, str]
+    models: Mapping[str, str]
+    amplitudes: Mapping[str, complex]
+
+
+def has_branch_current(element: Element) -> bool:
+    """Say whether the engine gives a current through this element."""
+    return element.letter in WITH_BRANCH_CURRENT or (_letter(element) == "B" and element.quantity == "v")
+
+
+def _letter(element: Element) -> str:
+    """Give the letter that an element has in the deck: a polynomial or a formula is a behavioural source."""
+    if element.letter in CONTROLLED and (element.polynomial or element.formula is not None):
+        return "B"
+    return element.letter
 
 
 def _options(circuit: Circuit, tight: bool) -> str:
@@ -79,26 +108,65 @@ def _options(circuit: Circuit, tight: bool) -> str:
     return " ".join([".options", *(f"{name}={_number(value, name)}" for name, value in options)])
 
 
-def _values(element: Element, models: Mapping[str, str], amplitudes: Mapping[str, complex]) -> Iterable[str]:
-    """Give what follows the nodes on an element's card."""
-    family = family_of(element.letter)
-    if family is None:
-        raise EngineError(f"{element.name} is of no family that the engine is given")
-    if unknown := sorted({name for name, _ in element.parameters} - family.instance_parameters):
+def _behind_name(element: Element, words: _Words) -> Iterable[str]:
+    """Give what follows the name on an element's card: nodes, value or model, parameters."""
+    model = next((m for m in words.circuit.models if fold(m.name) == fold(element.model)), None)
+    families = fitting(element, model)
+    if not families:
+        raise EngineError(f"{element.name} is of no family that the engine is given (model: {element.model or None})")
+    parameters = families[0].as_written(element, model)
+    known = frozenset[str]().union(*(family.instance_parameters for family in families))
+    if unknown := sorted({name for name, _ in parameters} - known):
         raise EngineError(f"{element.name}: parameter {unknown[0]} has no place in the engine's deck")
-    given = {name: _number(value, element.name) for name, value in element.parameters}
-    if element.letter in ("V", "I"):
-        yield f"dc {given.get('dc', '0.0')}"
-        amplitude = complex(amplitudes.get(fold(element.name), 0.0))
-        if amplitude:
-            yield f"ac {_amplitude(amplitude, element.name)}"
-        given = {name: value for name, value in given.items() if name == "m"}
-    elif element.letter == "G":
-        yield given.pop("gain", "0.0")
+    given = {name: _number(value, element.name) for name, value in parameters}
+    references = [words.elements[fold(name)] for name in element.references]
+    if _letter(element) == "B":
+        yield from (words.nodes[node] for node in element.nodes[:2])
+        yield _behaviour(element, words)
+        given = {name: value for name, value in given.items() if element.letter == "B" or name not in ("gain", "m")}
+    elif element.letter == "K":
+        yield from (*references, given.pop("coupling"))
+    elif element.formula is not None:
+        yield from (words.nodes[node] for node in element.nodes)
+        yield f"{_quantity(element)} = {written(element.formula, words.nodes, words.elements)}"
     else:
-        yield models[fold(element.model)]
+        yield from (words.nodes[node] for node in element.nodes)
+        yield from references
+        if element.letter in ("V", "I"):
+            yield from _independent(element, given, words.amplitudes)
+            given = {name: value for name, value in given.items() if name == "m"}
+        own = [given.pop(name) for name in ("value", "gain") if name in given]
+        of_model = [words.models[fold(element.model)]] if element.model else []
+        # ngspice takes the model of a capacitor or inductor before the value, that of a resistor behind it.
+        yield from (*own, *of_model) if element.letter == "R" else (*of_model, *own)
     for name, value in given.items():
-        yield "off" if name == "off" else f"{name}={value}"
+        yield name if name in ("on", "off") else f"{name}={value}"
+
+
+def _independent(element: Element, given: Mapping[str, str], amplitudes: Mapping[str, complex]) -> Iterable[str]:
+    yield f"dc {given.get('dc', '0.0')}"
+    amplitude = complex(amplitudes.get(fold(element.name), 0.0))
+    if amplitude:
+        yield f"ac {_amplitude(amplitude, element.name)}"
+
+
+def _behaviour(element: Element, words: _Words) -> str:
+    """Write what a behavioural source gives: of a controlled source times its m, which B does not know."""
+    formula = as_formula(element) if element.polynomial else element.formula
+    assert formula is not None
+    quantity = element.quantity or {"E": "v", "H": "v"}.get(element.letter, "i")
+    if quantity not in ("v", "i"):
+        raise EngineError(f"{element.name} gives {quantity!r}, which has no place in the engine's deck")
+    m = element.parameter("m", 1.0) if element.letter in "FG" else 1.0
+    if m != 1.0:
+        formula = Apply("*", (Number(m), formula))
+    return f"{quantity} = {written(formula, words.nodes, words.elements)}"
+
+
+def _quantity(element: Element) -> str:
+    if element.quantity not in {"R": "r", "C": "cq", "L": "l"}.get(element.letter, ""):
+        raise EngineError(f"{element.name} gives {element.quantity!r}, which has no place in the engine's deck")
+    return element.quantity
 
 
 def _amplitude(amplitude: complex, name: str) -> str:
@@ -110,15 +178,20 @@ def _amplitude(amplitude: complex, name: str) -> str:
 
 
 def _model(name: str, model: Model) -> str:
-    family = next((family for family in FAMILIES if model.type in family.model_types), None)
-    if family is None or model.level not in family.levels:
+    families = [family for family in FAMILIES if model.type in family.model_types and model.level in family.levels]
+    if not families:
         raise EngineError(f"model {model.name} is of no type or level that the engine is given")
-    if unknown := sorted({parameter for parameter, _ in model.parameters} - family.model_parameters):
+    known = frozenset[str]().union(*(family.model_parameters for family in families))
+    flags = frozenset[str]().union(*(family.flags for family in families))
+    if unknown := sorted({parameter for parameter, _ in model.parameters} - known - flags):
         raise EngineError(f"model {model.name}: parameter {unknown[0]} has no place in the engine's deck")
-    values = " ".join(
-        f"{parameter}={_number(value, model.name)}" for parameter, value in model.parameters if parameter != "level"
-    )
-    return f".model {name} {model.type}(level={model.level} {values})"
+    values = [] if model.level == 1 else [f"level={model.level}"]
+    for parameter, value in model.parameters:
+        if parameter in flags:
+            values += [parameter] if value else []
+        elif parameter != "level":
+            values.append(f"{parameter}={_number(value, model.name)}")
+    return f".model {name} {SHORT_TYPES.get(model.type, model.type)}({' '.join(values)})"
 
 
 def _number(value: float, owner: str) -> str:
