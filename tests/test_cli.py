@@ -149,7 +149,7 @@ def test_midband_is_written_as_in_a_netlist(run: Run, asked: dict[str, Any], typ
         (("review", "b.cir", "--timeout", "soon"), "'soon' is not a valid float"),
         (("review", "b.cir", "--color", "sepia"), "'sepia' is not one of 'auto', 'always', 'never'"),
         (("review", "-"), "the netlist must be a file"),
-        (("review",), "Missing argument 'NETLIST'"),
+        (("review",), "Missing argument 'NETLIST...'"),
         (("review", "b.cir", "--jso", "x"), "Did you mean"),
         (("review", "b.cir", "--json", "/"), "this is a folder"),
         (("review", "b.cir", "--json", "/nowhere/at/all.json"), "there is no folder /nowhere/at"),

@@ -9,7 +9,9 @@ from typing import TYPE_CHECKING
 import click
 
 from tauledger.commands.console import can_show_symbols, colored, hertz, print_bytes, writable, write
+from tauledger.commands.reports import report_files, review_each, write_report
 from tauledger.errors import ExitCode, InputError
+from tauledger.report.progress import progress
 
 if TYPE_CHECKING:
     from tauledger.record import NodeRow, Review
@@ -21,23 +23,25 @@ _EXIT_CODES = (
 )
 
 
-@click.command("review", short_help="Review one netlist.", epilog=_EXIT_CODES)
-@click.argument("netlist")
+@click.command("review", short_help="Review one netlist, or several.", epilog=_EXIT_CODES)
+@click.argument("netlists", metavar="NETLIST...", nargs=-1, required=True)
 @click.option("--input", "drive", metavar="SRC", help="Drive source SRC with 1, all others with 0.")
 @click.option("--output", metavar="V", help="Take the response at: out, 'v(a,b)' or 'i(vload)'.")
 @click.option("--midband", metavar="HZ", help="Refer band edges to the gain at HZ, e.g. 10k.")
 @click.option("--json", "json_file", metavar="FILE", help="Write the review as JSON; '-': alone on standard output.")
+@click.option("--report", metavar="FILE", multiple=True, help="Write .html, .md or .csv; folder/: a page per netlist.")
 @click.option("--timeout", metavar="S", type=float, default=60.0, show_default=True, help="Seconds ngspice may take.")
 @click.option("--library", metavar="PATH", help="Use this ngspice library.")
 @click.option("--color", type=click.Choice(_COLOR_CHOICES), default="auto", show_default=True, help="Colour the text.")
 @click.option("--working", metavar="NODE", multiple=True, help="Work a signal node out, line by line; repeatable.")
 @click.option("--verbose", is_flag=True, help="Show every node, part, pole and zero, and the working.")
 def review_command(
-    netlist: str,
+    netlists: tuple[str, ...],
     drive: str | None,
     output: str | None,
     midband: str | None,
     json_file: str | None,
+    report: tuple[str, ...],
     timeout: float,
     library: str | None,
     color: str,
@@ -45,20 +49,45 @@ def review_command(
     verbose: bool,
 ) -> ExitCode:
     """Review the amplifier in NETLIST: does paper agree with the simulation, where not, and why?"""
-    if netlist == "-":
+    if "-" in netlists:
         raise InputError("the netlist must be a file", "files that it includes are looked up beside it")
     if not timeout > 0.0:
         raise InputError(f"--timeout {timeout:g}: no time to run in", "give seconds above 0, e.g. --timeout 60")
     midband_hz = None if midband is None else hertz("--midband", midband)
+    if json_file is not None and len(netlists) > 1:
+        raise InputError(f"--json {json_file}: one document holds one review", "give one netlist")
     target = None if json_file in (None, "-") else writable("--json", Path(str(json_file)))
+    files, folder = report_files(report, netlists=len(netlists)) if report else ([], None)
 
-    from tauledger.engine.client import start_engine
+    def one(netlist: str) -> Review:
+        from tauledger.engine.client import start_engine
 
-    # ngspice comes up in its own process while the rest of this one is imported.
-    with start_engine(library=library, timeout_s=timeout) as engine:
-        from tauledger.pipeline import review
+        # ngspice comes up in its own process while the rest of this one is imported.
+        with start_engine(library=library, timeout_s=timeout) as engine:
+            from tauledger.pipeline import review
 
-        found = review(netlist, engine=engine, drive=drive, output=output, midband_hz=midband_hz)
+            return review(netlist, engine=engine, drive=drive, output=output, midband_hz=midband_hz)
+
+    def show(found: Review) -> None:
+        from tauledger.report.terminal import render
+
+        encoding = sys.stdout.encoding
+        text = render(
+            found,
+            color=colored(color),
+            unicode=can_show_symbols(encoding),
+            verbose=verbose,
+            working=_nodes(found, working),
+        )
+        print_bytes(text.encode(encoding, errors="backslashreplace"))
+
+    if len(netlists) > 1 or folder is not None:
+        return review_each(netlists, folder, one=one, show=show, verdict=_verdict)
+    with progress(sys.stderr) as tell:
+        tell(f"reviewing {netlists[0]}")
+        found = one(netlists[0])
+        for file in files:
+            write_report(file, found, tell)
     if json_file is not None:
         from tauledger.report.json import to_json
 
@@ -67,14 +96,7 @@ def review_command(
             print_bytes(document)
             return _verdict(found)
         write("--json", target, document)
-
-    from tauledger.report.terminal import render
-
-    encoding = sys.stdout.encoding
-    text = render(
-        found, color=colored(color), unicode=can_show_symbols(encoding), verbose=verbose, working=_nodes(found, working)
-    )
-    print_bytes(text.encode(encoding, errors="backslashreplace"))
+    show(found)
     return _verdict(found)
 
 

@@ -59,7 +59,7 @@ _ASCII_TABLE = str.maketrans(_ASCII)
 SYMBOLS = "".join(_ASCII)
 
 _GLUE = "\N{NO-BREAK SPACE}"
-_BEFORE_A_UNIT = re.compile(r"(?<=[\d∞]) (?=(?:%|[fpnuµmkMGT]?(?:Hz|F|Ω|ohm|s|V|A|S|H)|dB|deg)(?!\w))")
+BEFORE_A_UNIT = re.compile(r"(?<=[\d∞]) (?=(?:%|[fpnuµmkMGT]?(?:Hz|F|Ω|ohm|s|V|A|S|H)|dB|deg)(?!\w))")
 
 
 class Row(Struct, frozen=True):
@@ -151,7 +151,7 @@ def _block(block: Block, *, width: int, unicode: bool) -> list[Line]:
 def _prose(prose: Prose, *, width: int, unicode: bool) -> list[Line]:
     """Wrap greedily at blanks; a number is never parted from its unit."""
     lead = spell(prose.lead, unicode=unicode)
-    words = _BEFORE_A_UNIT.sub(_GLUE, spell(prose.text, unicode=unicode)).split(" ")
+    words = BEFORE_A_UNIT.sub(_GLUE, spell(prose.text, unicode=unicode)).split(" ")
     texts: list[str] = []
     hang = " " * (cells(lead) if prose.hang is None else prose.hang)
     current, empty = lead, True

@@ -1,0 +1,174 @@
+"""The frequency response: magnitude above phase, the simulation as a solid line, hand analysis as a dashed one."""
+
+from __future__ import annotations
+
+import math
+from typing import TYPE_CHECKING
+
+from tauledger.record import Curves, Review
+from tauledger.report.charts.style import blank, light, styled, to_svg
+from tauledger.report.tables.roots import Root, near_roots
+from tauledger.report.wording import number
+
+if TYPE_CHECKING:
+    from matplotlib.axes import Axes
+
+BELOW_DB = 70.0
+BEYOND = 300.0
+# Marks closer than this ratio have no room for both their names above them.
+NAME_NEEDS = 1.8
+DECIBEL = {"V/V": "dB", "A/A": "dB", "ohm": "dBΩ", "Ω": "dBΩ", "S": "dBS"}
+
+
+def bode_chart(review: Review) -> str:
+    """Draw magnitude and phase as SVG; empty where there are no curves."""
+    curves = review.curves
+    if curves is None or len(curves.frequency_hz) < 2:
+        return ""
+    first, last = _range(review, curves)
+    with styled():
+        figure = blank(5.2)
+        upper, lower = figure.subplots(2, 1, sharex=True, height_ratios=(1.35, 1.0))
+        lines = (
+            ("hand", "by hand", curves.hand_db, curves.hand_deg, {"linestyle": (0, (5, 2)), "linewidth": 1.5}),
+            (
+                "exact",
+                "exact",
+                curves.exact_db if curves.simulated_db is None else None,
+                curves.exact_deg,
+                {"linewidth": 1.6},
+            ),
+            ("simulated", "simulated", curves.simulated_db, curves.simulated_deg, {"linewidth": 1.6}),
+        )
+        shown = [k for k, f in enumerate(curves.frequency_hz) if first <= f <= last]
+        frequency = [curves.frequency_hz[k] for k in shown]
+        at = _nearest(curves, review.midband.frequency_hz)
+        gain = complex(review.midband.gain_real, review.midband.gain_imag)
+        midband_deg = math.degrees(math.atan2(gain.imag, gain.real))
+        for name, label, magnitude, phase, look in lines:
+            if magnitude is None or phase is None:
+                continue
+            turns = 360.0 * round((midband_deg - phase[at]) / 360.0)
+            upper.plot(frequency, [magnitude[k] for k in shown], color=light(name), label=label, **look)
+            lower.plot(frequency, [phase[k] + turns for k in shown], color=light(name), **look)
+        upper.set_xscale("log")
+        upper.set_xlim(first, last)
+        top, bottom = _magnitude_range(review, curves, shown)
+        upper.set_ylim(bottom, top)
+        upper.set_ylabel(f"magnitude in {DECIBEL.get(review.midband.unit, 'dB')}")
+        lower.set_ylabel("phase in degrees")
+        _degrees(lower)
+        lower.set_xlabel("frequency")
+        _hertz(lower)
+        for axes in (upper, lower):
+            axes.grid(axis="both")
+            axes.set_axisbelow(True)
+        _edges(upper, lower, review)
+        _roots(upper, near_roots(review), first, last)
+        upper.legend(loc="lower left", bbox_to_anchor=(0.0, 1.0), ncols=3, frameon=False, borderpad=0.0)
+        told = ", ".join(f"{name} at {number(hz, 'Hz')}" for name, hz in _edge_places(review))
+        return to_svg(figure, key="bode", title=f"Magnitude and phase over frequency; {told or 'no band edges'}")
+
+
+def _range(review: Review, curves: Curves) -> tuple[float, float]:
+    """Show the band with room around it rather than every decade of the sweep."""
+    first, last = curves.frequency_hz[0], curves.frequency_hz[-1]
+    places = dict(_edge_places(review))
+    if "f_L" in places:
+        first = max(first, places["f_L"] / BEYOND)
+    elif "f_H" in places:
+        first = max(first, places["f_H"] / 1e4)
+    if "f_H" in places:
+        last = min(last, places["f_H"] * BEYOND)
+    return (first, last) if first < last else (curves.frequency_hz[0], curves.frequency_hz[-1])
+
+
+def _magnitude_range(review: Review, curves: Curves, shown: list[int]) -> tuple[float, float]:
+    drawn = [row for row in (curves.simulated_db, curves.exact_db, curves.hand_db) if row is not None]
+    values = [row[k] for row in drawn for k in shown]
+    top = max(values)
+    bottom = max(min(values), review.midband.gain_db - BELOW_DB)
+    room = 0.08 * (top - bottom) or 1.0
+    return top + room, bottom - 3.2 * room
+
+
+def _nearest(curves: Curves, hz: float) -> int:
+    """Give the place of the frequency next to `hz`, where phases are brought to the same turn."""
+    wanted = hz or curves.frequency_hz[0]
+    return min(range(len(curves.frequency_hz)), key=lambda k: abs(math.log(curves.frequency_hz[k] / wanted)))
+
+
+def _degrees(axes: Axes) -> None:
+    from matplotlib.ticker import MultipleLocator
+
+    low, high = axes.get_ylim()
+    step = next((step for step in (15, 30, 45, 90, 180) if (high - low) / step <= 6), 360)
+    axes.yaxis.set_major_locator(MultipleLocator(step))
+
+
+def _hertz(axes: Axes) -> None:
+    from matplotlib.ticker import FuncFormatter, LogLocator, NullLocator
+
+    first, last = axes.get_xlim()
+    every = 1 if math.log10(last / first) <= 8 else 2
+    axes.xaxis.set_major_locator(LogLocator(base=10.0**every))
+    axes.xaxis.set_minor_locator(NullLocator())
+    axes.xaxis.set_major_formatter(FuncFormatter(lambda hz, _: number(hz, "Hz", 1)))
+
+
+def _edge_places(review: Review) -> list[tuple[str, float]]:
+    places = []
+    for name, edge in (("f_L", review.f_low), ("f_H", review.f_high)):
+        hz = None if edge is None else edge.simulated_hz if edge.simulated_hz is not None else edge.exact_hz
+        if hz is not None:
+            places.append((name, hz))
+    return places
+
+
+def _edges(upper: Axes, lower: Axes, review: Review) -> None:
+    for name, hz in _edge_places(review):
+        for axes in (upper, lower):
+            axes.axvline(hz, color=light("muted"), linewidth=1.0, linestyle=(0, (1, 2)))
+        level = review.midband.gain_db - 20.0 * math.log10(math.sqrt(2.0))
+        upper.plot([hz], [level], marker="D", markersize=4.5, color=light("ink"), linestyle="none")
+        inwards = 7 if name == "f_L" else -7
+        upper.annotate(
+            f"{name} {number(hz, 'Hz')}",
+            (hz, level),
+            (inwards, -7),
+            textcoords="offset points",
+            ha="left" if name == "f_L" else "right",
+            va="top",
+        )
+
+
+def _roots(axes: Axes, roots: tuple[Root, ...], first: float, last: float) -> None:
+    """Mark poles and zeros on two lines at the foot of the magnitude; names step aside where marks come close."""
+    transform = axes.get_xaxis_transform()
+    for is_pole, height in ((True, 0.045), (False, 0.17)):
+        visible = [root for root in roots if root.is_pole is is_pole and first <= root.size_hz <= last]
+        level, before = 0, 0.0
+        for root in sorted(visible, key=lambda root: root.size_hz):
+            level = 1 - level if before and root.size_hz < NAME_NEEDS * before else 0
+            before = root.size_hz
+            axes.plot(
+                [root.size_hz],
+                [height],
+                transform=transform,
+                marker="x" if is_pole else "o",
+                markersize=6.0,
+                markeredgewidth=1.5,
+                markerfacecolor="none",
+                color=light("ink"),
+                linestyle="none",
+            )
+            sideways, upwards = ((0, 5), (7, -4))[level]
+            axes.annotate(
+                root.name,
+                (root.size_hz, height),
+                (sideways, upwards),
+                xycoords=transform,
+                textcoords="offset points",
+                ha="left" if level else "center",
+                va="bottom",
+            )

@@ -1,0 +1,275 @@
+"""The report as data: sections in the order in which a reviewer asks, each with tables, figures and sentences.
+
+HTML and Markdown print the same document; a figure is named here and drawn where the format can show it.
+"""
+
+from __future__ import annotations
+
+from typing import Literal
+
+from msgspec import Struct
+
+from tauledger.record import NodeRow, Review
+from tauledger.report.sentences import (
+    Answer,
+    KeyFigure,
+    answers,
+    believed,
+    cause_text,
+    drive_sentence,
+    headline,
+    key_figures,
+    note_text,
+    plain,
+)
+from tauledger.report.tables import lower, roots, setting, upper, way
+from tauledger.report.tables.grid import Grid
+from tauledger.report.wording import EDGE, fraction, move, number, part_titles, withheld
+
+FigureName = Literal["time", "shares", "way", "bode", "stages", "plane"]
+
+
+class Prose(Struct, frozen=True):
+    """A paragraph."""
+
+    text: str
+
+
+class Picture(Struct, frozen=True):
+    """A figure: which one, and its caption."""
+
+    name: FigureName
+    caption: str
+
+
+class Item(Struct, frozen=True):
+    """One cause, note or caution: what leads it ("f_H −25 %"), the sentences."""
+
+    lead: str
+    text: str
+
+
+class Items(Struct, frozen=True):
+    """A list of causes, notes or cautions."""
+
+    items: tuple[Item, ...]
+
+
+class Folded(Struct, frozen=True):
+    """Something a reader opens: its title, and lines of working or a table."""
+
+    title: str
+    lines: tuple[str, ...] = ()
+    grid: Grid | None = None
+
+
+Block = Prose | Picture | Items | Folded | Grid
+
+
+class Section(Struct, frozen=True):
+    """One section; terms: those that first come up here, by name."""
+
+    key: str
+    title: str
+    blocks: tuple[Block, ...]
+    terms: tuple[str, ...] = ()
+
+
+class Document(Struct, frozen=True):
+    """The whole report; warning: what must be read before anything else."""
+
+    title: str
+    subtitle: str
+    headline: str
+    figures: tuple[KeyFigure, ...]
+    answers: tuple[Answer, ...]
+    sections: tuple[Section, ...]
+    warning: str = ""
+
+
+def document(review: Review) -> Document:
+    """Arrange a review for reading."""
+    sections = (
+        _drive(review),
+        _budget(review),
+        _time(review),
+        _shares(review),
+        _way(review),
+        _bode(review),
+        _causes(review),
+        _lower(review),
+        _stages(review),
+        _devices(review),
+        _roots(review),
+        _lines(review),
+        _proof(review),
+        _trust(review),
+    )
+    rejected = review.agreement is not None and review.agreement.max_relative_error > 1e-6
+    return Document(
+        title=review.netlist.title or "(no title)",
+        subtitle=_subtitle(review),
+        headline=headline(review),
+        figures=key_figures(review),
+        answers=answers(review),
+        sections=tuple(section for section in sections if section.blocks),
+        warning=believed(review) if rejected else "",
+    )
+
+
+def _subtitle(review: Review) -> str:
+    path = review.netlist.path or "network built from parts"
+    return f"{path} at {review.temperature_c:.4g} °C. {drive_sentence(review)}"
+
+
+def _drive(review: Review) -> Section:
+    return Section(
+        "drive",
+        "Drive and load",
+        (setting.drive_and_load(review),),
+        ("Mid-band", "Band edge", "By hand, exact, simulated"),
+    )
+
+
+def _budget(review: Review) -> Section:
+    blocks: list[Block] = []
+    if withheld(review):
+        blocks.append(Prose(withheld(review)))
+    nodes = upper.counting_nodes(review)
+    if nodes:
+        blocks.append(upper.budget(review))
+        blocks.extend(_working(node, review) for node in nodes if node.working is not None)
+    if len(review.nodes) > len(nodes):
+        rest = upper.smaller_nodes(review)
+        blocks.append(Folded(rest.caption, grid=rest))
+    return Section(
+        "budget",
+        "The time-constant budget of the upper edge",
+        tuple(blocks),
+        ("Signal node", "R", "Time constant", "Miller factor", "1 pF more"),
+    )
+
+
+def _working(node: NodeRow, review: Review) -> Folded:
+    """Write the working of one node: its resistances first, then capacitance by capacitance."""
+    working = node.working
+    assert working is not None
+    titles = part_titles(review.parts)
+    about_gain = {term.text for term in working.capacitances}
+    lines = [line for line in working.text.split("; ") if line not in about_gain]
+    if working.loop_gain is not None:
+        lines.append(f"feedback loop with loop gain T = {working.loop_gain:.4g}")
+    lines.append(f"exact: {number(node.resistance_exact_ohm, 'Ω')}")
+    for term in sorted(working.capacitances, key=lambda term: -abs(upper.term_seconds(term, node))):
+        because = f" because {term.text}" if term.text else ""
+        lines.append(f"{titles.get(term.part, term.part)}: {upper.term_text(term)}{because}")
+    told = tuple(plain(line, review) for line in lines)
+    return Folded(f"Working: {node.title}, share of f_H {fraction(node.share.f_high)}", told)
+
+
+def _time(review: Review) -> Section:
+    picture = Picture(
+        "time",
+        "R·C of every capacitance that matters, by hand above exact, under the node where it counts most. The bars add "
+        "up to the sum of time constants.",
+    )
+    return Section("time", "Where the time goes", (picture,) if upper.counting_nodes(review) else ())
+
+
+def _shares(review: Review) -> Section:
+    if not upper.by_share(review):
+        return Section("shares", "", ())
+    picture = Picture(
+        "shares",
+        "Share of f_H, exact, at the edge itself. What takes most time at low frequency need not have "
+        "the largest share.",
+    )
+    return Section("shares", "Whose capacitance sets f_H", (picture, upper.shares(review)), ("Share", "Recomputed"))
+
+
+def _way(review: Review) -> Section:
+    blocks: list[Block] = []
+    if way.way(review, "f_high"):
+        blocks.append(Picture("way", "Estimates of f_H, each with one more thing taken into account."))
+        blocks.append(way.way_table(review, "f_high"))
+        methods = way.methods_table(review, "f_high")
+        if methods.rows:
+            blocks.append(Folded(methods.caption, grid=methods))
+    title = "From paper to simulation"
+    return Section("way", title, tuple(blocks), ("Lowest node alone", "Sum of time constants", "σ"))
+
+
+def _bode(review: Review) -> Section:
+    if review.curves is None:
+        return Section("bode", "", ())
+    caption = (
+        "Magnitude and phase over frequency; dotted lines at the band edges, poles × and zeros ○ at the foot of the "
+        "magnitude, named as in the table of poles and zeros."
+    )
+    return Section("bode", "Frequency response", (Picture("bode", caption),), ("Pole, zero",))
+
+
+def _causes(review: Review) -> Section:
+    if withheld(review):
+        return Section("causes", "", ())
+    items = tuple(
+        Item(f"{EDGE.get(cause.quantity, cause.quantity)} {move(cause.effect)}", cause_text(cause, review))
+        for cause in review.causes
+    )
+    block: Block = Items(items) if items else Prose("Nothing of note above 2 %.")
+    return Section("causes", "Why paper and simulation differ", (block,))
+
+
+def _lower(review: Review) -> Section:
+    blocks: list[Block] = []
+    if review.f_low is not None and lower.lower_parts(review):
+        blocks.append(lower.lower_edge(review))
+        if way.way(review, "f_low"):
+            blocks.append(way.way_table(review, "f_low"))
+        methods = way.methods_table(review, "f_low")
+        if methods.rows:
+            blocks.append(Folded(methods.caption, grid=methods))
+    if lower.aside(review):
+        blocks.append(Prose(lower.aside(review)))
+    return Section("lower", "The lower edge", tuple(blocks), ("Edge alone", "Bypass zero"))
+
+
+def _stages(review: Review) -> Section:
+    if not review.stages:
+        return Section("stages", "", ())
+    caption = (
+        "The small-signal circuit of the hand analysis, stage by stage: at every node its resistance and its "
+        "capacitances with their Miller part, R_Th the resistance at the input. Gm·v, with Gm = gain over R, gives the "
+        "gain in the table."
+    )
+    return Section("stages", "Stages", (setting.stages(review), Picture("stages", caption)))
+
+
+def _devices(review: Review) -> Section:
+    return Section("devices", "Devices", setting.devices(review), ("gm, r_π, r_o, C_π, C_μ, f_T",))
+
+
+def _roots(review: Review) -> Section:
+    if not roots.near_roots(review):
+        return Section("roots", "", ())
+    caption = "Poles × and zeros ○ in the s-plane. Each circle is one decade farther out; the angle is true."
+    return Section("roots", "Poles and zeros", (Picture("plane", caption), roots.roots_table(review)))
+
+
+def _lines(review: Review) -> Section:
+    return Section("lines", "The netlist lines that matter", (setting.source_lines(review),) if review.lines else ())
+
+
+def _proof(review: Review) -> Section:
+    grids = [grid for grid in (way.reruns(review), setting.sums(review)) if grid.rows]
+    return Section("proof", "What was computed again as proof", tuple(grids))
+
+
+def _trust(review: Review) -> Section:
+    blocks: list[Block] = [Prose(believed(review))]
+    cautions = [Item("Caution", text) for text in review.cautions]
+    notes = [Item("Note", note_text(note, review)) for note in review.notes]
+    if cautions or notes:
+        blocks.append(Items((*cautions, *notes)))
+    blocks.append(setting.versions(review))
+    return Section("trust", "Agreement, versions, cautions", tuple(blocks), ("Agreement",))

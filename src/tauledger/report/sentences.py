@@ -1,0 +1,274 @@
+"""What a reviewer with two minutes reads: one headline, four figures, four questions with their answers."""
+
+from __future__ import annotations
+
+import math
+import re
+
+from msgspec import Struct
+
+from tauledger.record import CauseFacts, EdgeFacts, NodeRow, NoteFacts, PartRow, Review
+from tauledger.report.tables.setting import output_text
+from tauledger.report.tables.upper import counting_nodes, term_seconds, whole_s
+from tauledger.report.wording import (
+    AGREEMENT_WARNS,
+    EDGE,
+    fraction,
+    move,
+    network_rejected,
+    nominal,
+    number,
+    part_titles,
+    part_unit,
+    retitled,
+    symbol,
+    withheld,
+)
+
+_DECIBEL = {"V/V": "dB", "A/A": "dB", "ohm": "dBΩ", "Ω": "dBΩ", "S": "dBS"}
+_RAISED = str.maketrans("-0123456789", "⁻⁰¹²³⁴⁵⁶⁷⁸⁹")
+_INNER = re.compile(r"\b[cC]_(?:pi|mu)\b")
+ESTIMATE = "This is an estimate; it does not replace measuring the board."
+
+
+class KeyFigure(Struct, frozen=True):
+    """One of the four figures: what it is, its value, and what belongs beside it."""
+
+    label: str
+    value: str
+    beside: str
+
+
+class Answer(Struct, frozen=True):
+    """One question of a reviewer and its answer."""
+
+    question: str
+    answer: str
+
+
+def headline(review: Review) -> str:
+    """Say gain and band, and which node limits them, in one or two sentences."""
+    midband = review.midband
+    gain = f"{midband.gain_db:.1f} {_DECIBEL.get(midband.unit, 'dB')}"
+    low, high = _hz(review.f_low), _hz(review.f_high)
+    if high is not None:
+        start = "DC" if low is None and midband.from_hz == 0.0 else number(low, "Hz", 3)
+        band = (
+            f"from {start} to {number(high, 'Hz', 3)}"
+            if low is not None or start == "DC"
+            else f"up to {number(high, 'Hz', 3)}"
+        )
+    elif low is not None:
+        band = f"from {number(low, 'Hz', 3)} upwards"
+    else:
+        band = "without band edges in the range looked at"
+    said = f"{gain} {band}"
+    node = limiting_node(review)
+    if node is None:
+        return f"{said}."
+    part = _largest_part(node, review)
+    through = f", mostly through {part}" if part else ""
+    return f"{said}; the upper edge is set at {_at(node)}{through}."
+
+
+def key_figures(review: Review) -> tuple[KeyFigure, ...]:
+    """Give gain, both edges and the agreement."""
+    midband = review.midband
+    gain = complex(midband.gain_real, midband.gain_imag)
+    size = gain.real if abs(gain.imag) <= 1e-2 * abs(gain.real) else abs(gain)
+    at = "DC" if midband.frequency_hz == 0.0 else number(midband.frequency_hz, "Hz")
+    figures = [
+        KeyFigure(
+            "Gain at mid-band",
+            f"{midband.gain_db:.2f} {_DECIBEL.get(midband.unit, 'dB')}",
+            f"{number(size, midband.unit)} at {at}",
+        )
+    ]
+    for label, edge in (("Lower edge f_L", review.f_low), ("Upper edge f_H", review.f_high)):
+        if edge is None:
+            reaches = label.startswith("Lower") and midband.from_hz == 0.0
+            figures.append(KeyFigure(label, "none", "the gain holds down to DC" if reaches else "no fall of 3 dB"))
+            continue
+        alone = "lowest node" if label.startswith("Upper") else "highest capacitor"
+        by_hand = f"{alone} by hand {number(edge.hand_hz, 'Hz')}" if edge.hand_hz is not None else "no hand estimate"
+        differs = f" ({move(edge.difference)})" if edge.hand_hz is not None and edge.difference is not None else ""
+        figures.append(KeyFigure(label, number(_hz(edge), "Hz"), by_hand + differs))
+    if review.agreement is None:
+        figures.append(KeyFigure("Checked against ngspice", "no", "numbers of the network as given"))
+    else:
+        error = review.agreement.max_relative_error
+        figures.append(
+            KeyFigure(
+                "Agreement with ngspice",
+                power_of_ten(error),
+                f"largest difference at {review.agreement.points} frequencies",
+            )
+        )
+    return tuple(figures)
+
+
+def answers(review: Review) -> tuple[Answer, ...]:
+    """Answer what a reviewer asks: what limits, does paper agree, what would help, is it to be believed."""
+    told = []
+    if withheld(review):
+        told.append(Answer("What is missing?", withheld(review)))
+    limit = _what_limits(review)
+    if limit:
+        told.append(Answer("What limits the bandwidth?", limit))
+    agrees = _does_paper_agree(review)
+    if agrees:
+        told.append(Answer("Does paper agree?", agrees))
+    helps = _what_helps(review)
+    if helps:
+        told.append(Answer("What would help most?", helps))
+    told.append(Answer("Can it be believed?", believed(review)))
+    return tuple(told)
+
+
+def drive_sentence(review: Review) -> str:
+    """Say what drives, through what, where the output is taken and what loads it."""
+    drives = []
+    for drive in review.drive:
+        through = f" through {nominal(drive.resistance_ohm, 'Ω')}" if drive.resistance_ohm is not None else ""
+        drives.append(f"{drive.source}{through}")
+    loads = review.output.load
+    load = " ‖ ".join(f"{part.name} {nominal(part.value, part_unit(part.kind))}" for part in loads)
+    loaded = f", loaded with {load}" if load else ", without a load to ground"
+    return f"{' and '.join(drives) or 'nothing'} drives; the output is {output_text(review.output)}{loaded}."
+
+
+def limiting_node(review: Review) -> NodeRow | None:
+    """Give the node with the largest time constant of those that count."""
+    return next(iter(counting_nodes(review)), None)
+
+
+def cause_text(cause: CauseFacts, review: Review) -> str:
+    """Write a cause as sentences: what makes hand and simulation differ, and what to do instead."""
+    instead = f" {sentence(cause.instead)}" if cause.instead else ""
+    return plain(sentence(cause.says) + instead, review)
+
+
+def note_text(note: NoteFacts, review: Review) -> str:
+    """Write a note, its place before it unless the sentence names it."""
+    placed = f"{note.where}: {note.says}" if note.where and note.where not in note.says else note.says
+    return plain(sentence(placed), review)
+
+
+def plain(text: str, review: Review) -> str:
+    """Write the names of a device's own capacitances as the trade does."""
+    return _INNER.sub(lambda found: symbol(found.group()), retitled(text, review.parts))
+
+
+def sentence(text: str) -> str:
+    """Open with a capital unless the first word is a name or a symbol, close with a full stop."""
+    start = text[:1].upper() if text[1:2].islower() else text[:1]
+    return start + text[1:] + ("" if text.endswith((".", "!", "?")) else ".")
+
+
+def power_of_ten(value: float) -> str:
+    """Write a small number as 1.2·10⁻¹⁰."""
+    if not math.isfinite(value) or value == 0.0:
+        return f"{value:g}"
+    mantissa, exponent = f"{value:.1e}".split("e")
+    return f"{mantissa}·10{str(int(exponent)).translate(_RAISED)}"
+
+
+def believed(review: Review) -> str:
+    """Say how well the rebuilt network and ngspice agree, and that this is an estimate."""
+    facts = review.agreement
+    if facts is None or review.engine is None:
+        return f"No simulation was run: all numbers come from the network as given. {ESTIMATE}"
+    engine = f"{review.engine.name} {review.engine.version}"
+    error = f"{power_of_ten(facts.max_relative_error)} at {facts.points} frequencies"
+    if network_rejected(review):
+        return f"No. The rebuilt network differs from the sweep of {engine} by {error}; only the sweep counts here."
+    if facts.max_relative_error > AGREEMENT_WARNS:
+        return f"With care. The rebuilt network differs from the sweep of {engine} by {error}. {ESTIMATE}"
+    return (
+        f"The network rebuilt from the operating point agrees with the sweep of {engine} to {error}, so the exact "
+        f"numbers are those of the simulation. {ESTIMATE}"
+    )
+
+
+def _what_limits(review: Review) -> str:
+    node = limiting_node(review)
+    if node is None:
+        return ""
+    whole = whole_s(review)
+    part = (node.time_constant_s or 0.0) / whole if whole else math.nan
+    text = (
+        f"{sentence(node.title)[:-1]}: R {number(node.resistance_hand_ohm, 'Ω')} by hand "
+        f"({number(node.resistance_exact_ohm, 'Ω')} exact), C {number(node.capacitance_f, 'F')}, "
+        f"R·C {number(node.time_constant_s, 's')}, which is {fraction(part)} of the sum over all nodes."
+    )
+    terms = node.working.capacitances if node.working else ()
+    largest = max(terms, key=lambda term: term_seconds(term, node), default=None)
+    if largest is not None:
+        title = part_titles(review.parts).get(largest.part, largest.part)
+        size = number(largest.farad, "F", 3)
+        times = "" if abs(largest.factor - 1.0) < 0.05 else f", which counts {largest.factor:.4g} times there"
+        text += f" The largest piece of it is {title}, {size}{times}."
+    return text
+
+
+def _does_paper_agree(review: Review) -> str:
+    if review.f_high is None or review.f_high.hand_hz is None:
+        return ""
+    against = "simulation" if review.f_high.simulated_hz is not None else "exact value"
+    alone = f"{number(review.f_high.hand_hz, 'Hz')}, {move(review.f_high.difference)} against the {against}"
+    text = f"The lowest node alone gives {alone}"
+    summed = next((e for e in review.estimates if e.edge == "f_high" and e.method == "sum of time constants"), None)
+    if summed is not None and summed.hz is not None and summed.difference is not None:
+        text += f"; the sum of time constants gives {number(summed.hz, 'Hz')}, {move(summed.difference)}"
+    best = next((e for e in review.estimates if e.edge == "f_high" and e.recommended), None)
+    if best is not None and best.method != "sum of time constants" and best.difference is not None:
+        text += f"; the method to use here, {best.method}, {move(best.difference)}"
+    text += "."
+    cause = next((cause for cause in review.causes if EDGE.get(cause.quantity, cause.quantity) == "f_H"), None)
+    if cause is not None:
+        text += f" Largest cause ({move(cause.effect)}): {plain(cause.says, review)}."
+    return text
+
+
+def _what_helps(review: Review) -> str:
+    exact = review.f_high.exact_hz if review.f_high else None
+    if not exact:
+        return ""
+    titles = part_titles(review.parts)
+
+    def gain(part: PartRow) -> float:
+        less = part.ten_percent_less.f_high_hz
+        return less / exact - 1.0 if less is not None else -math.inf
+
+    ordered = sorted(review.parts, key=lambda part: -gain(part))
+    best = next(iter(ordered), None)
+    if best is None or gain(best) <= 0.0:
+        return ""
+    text = (
+        f"10 % less {titles[best.name]} raises f_H by {fraction(gain(best))} to "
+        f"{number(best.ten_percent_less.f_high_hz, 'Hz')} (recomputed)."
+    )
+    card = next((part for part in ordered if part.owner == part.name), None)
+    if card is not None and card is not best and gain(card) > 0.0:
+        text += f" Of the parts on the board it is {titles[card.name]}: {move(gain(card))}."
+    return text
+
+
+def _largest_part(node: NodeRow, review: Review) -> str:
+    terms = node.working.capacitances if node.working else ()
+    largest = max(terms, key=lambda term: term_seconds(term, node), default=None)
+    return part_titles(review.parts).get(largest.part, largest.part) if largest is not None else ""
+
+
+def _at(node: NodeRow) -> str:
+    """Name a node first and then what it is: "c1, the collector of Q1 and base of Q2"."""
+    what = node.title.removesuffix(f" ({node.name})")
+    if what == node.title:
+        return node.title
+    return f"{node.name}, the {' and '.join(what.split(', '))}"
+
+
+def _hz(edge: EdgeFacts | None) -> float | None:
+    if edge is None:
+        return None
+    return edge.simulated_hz if edge.simulated_hz is not None else edge.exact_hz

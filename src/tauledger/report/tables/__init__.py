@@ -1,0 +1,9 @@
+"""Tables for reading, as data: what HTML and Markdown both print.
+
+grid.py     the record of a table
+upper.py    time-constant budget, time constant and share of every capacitance
+lower.py    coupling and bypass capacitors
+roots.py    poles and zeros with the names that charts and table share
+way.py      estimates from the lowest node to the simulation, methods, reruns
+setting.py  drive and load, stages, devices, lines of the netlist, versions
+"""

@@ -1,0 +1,37 @@
+"""A table for reading: caption, columns, rows of text; the first cell of a row names it."""
+
+from __future__ import annotations
+
+from typing import Literal
+
+from msgspec import Struct
+
+
+class Column(Struct, frozen=True):
+    """One column; align: "l" or "r"."""
+
+    head: str
+    align: Literal["l", "r"] = "r"
+
+
+class GridRow(Struct, frozen=True):
+    """One row. kind: "part" below the row that it belongs to, "sum" for a total. part: the part or node that it is
+    about, so that charts can be linked with it."""
+
+    cells: tuple[str, ...]
+    kind: Literal["", "part", "sum"] = ""
+    part: str = ""
+
+
+class Grid(Struct, frozen=True):
+    """One table; note: what must be said below it."""
+
+    caption: str
+    columns: tuple[Column, ...]
+    rows: tuple[GridRow, ...]
+    note: str = ""
+
+
+def columns(first: str, *others: str) -> tuple[Column, ...]:
+    """Give the columns of a table of numbers: the first on the left, the others on the right."""
+    return (Column(first, "l"), *(Column(head) for head in others))

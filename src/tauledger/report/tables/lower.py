@@ -1,0 +1,73 @@
+"""The table of the lower edge: one row per coupling and bypass capacitor, with the zero that it makes."""
+
+from __future__ import annotations
+
+from tauledger.record import PartRow, Review
+from tauledger.report.tables.grid import Grid, GridRow, columns
+from tauledger.report.wording import NO_NUMBER, SOLVED, amount, fraction, move, number, part_title
+
+
+def lower_parts(review: Review) -> tuple[PartRow, ...]:
+    """Give the parts in the signal path that are short at mid-band or set its gain, highest edge first."""
+    rows = [
+        part for part in review.parts if part.klass in ("short", "gain") and part.in_path and part.edge_hz is not None
+    ]
+    return tuple(sorted(rows, key=lambda part: -(part.edge_hz or 0.0)))
+
+
+def lower_edge(review: Review) -> Grid:
+    """Give R by hand and exact, edge, zero, share of f_L and f_L recomputed with 10 % less."""
+    exact = review.f_low.exact_hz if review.f_low else None
+    rows = []
+    for part in lower_parts(review):
+        less = part.ten_percent_less.f_low_hz
+        ends = " to ".join("ground" if node == "0" else node for node in part.nodes)
+        rows.append(
+            GridRow(
+                (
+                    f"{part_title(part.name, part.owner)}, {ends}",
+                    amount(part),
+                    SOLVED if part.resistance_hand_ohm is None else number(part.resistance_hand_ohm, "Ω"),
+                    number(part.resistance_exact_ohm, "Ω"),
+                    number(part.edge_hz, "Hz"),
+                    "at DC" if part.zero_hz == 0.0 else number(part.zero_hz, "Hz"),
+                    fraction(part.share.f_low),
+                    number(less, "Hz"),
+                    move(less / exact - 1.0) if less is not None and exact else NO_NUMBER,
+                ),
+                part=part.name,
+            )
+        )
+    heads = columns(
+        "Capacitor",
+        "value",
+        "R by hand",
+        "R exact",
+        "edge alone",
+        "its zero",
+        "share of f_L",
+        "10 % less: f_L",
+        "change",
+    )
+    solved = any(part.resistance_hand_ohm is None for part in lower_parts(review))
+    note = f"{SOLVED} no hand rule fits: the exact resistance is used." if solved else ""
+    return Grid("Coupling and bypass capacitors at the lower edge", heads, tuple(rows), note)
+
+
+def aside(review: Review) -> str:
+    """Say which capacitors are left out of the table and why; empty where none is."""
+    told = []
+    short = [part for part in review.parts if part.klass == "short" and not part.in_path]
+    if short and review.budget.lower is not None:
+        told.append(f"{_named(short)}: not in the signal path.")
+    gain = [part for part in review.parts if part.klass == "gain"]
+    if gain:
+        told.append(f"{_named(gain)}: sets the mid-band gain.")
+    tuned = [part for part in review.parts if part.klass == "tuned"]
+    if tuned:
+        told.append(f"{_named(tuned)}: resonates, neither short nor open.")
+    return " ".join(told)
+
+
+def _named(parts: list[PartRow]) -> str:
+    return ", ".join(part_title(part.name, part.owner) for part in parts)

@@ -1,0 +1,199 @@
+"""Tables of the upper edge: the budget node by node, and what every capacitance takes and costs."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterable, Mapping
+
+from tauledger.record import CapacitanceTerm, NodeRow, PartRow, Review
+from tauledger.report.tables.grid import Grid, GridRow, columns
+from tauledger.report.wording import (
+    NO_NUMBER,
+    SOLVED,
+    amount,
+    fraction,
+    move,
+    number,
+    part_titles,
+    share,
+)
+
+PICOFARAD = 1e-12
+# Rows that take less of the sum stand apart, so that a reader of a large board sees what matters.
+MATTERS = 0.005
+WORTH_A_ROW = 0.002
+SHARES = 12
+
+
+def whole_s(review: Review) -> float:
+    """Give the sum of the time constants of the nodes that count, in s; halves of a pair are counted once in it."""
+    upper = review.budget.upper
+    if upper is not None and upper.path_sum_s:
+        return upper.path_sum_s
+    return math.fsum(node.time_constant_s or 0.0 for node in review.nodes if node.in_path)
+
+
+def counting_nodes(review: Review) -> tuple[NodeRow, ...]:
+    """Give the nodes that take at least half a per cent of the sum, largest first."""
+    least = MATTERS * abs(whole_s(review))
+    rows = [node for node in review.nodes if node.in_path and abs(node.time_constant_s or 0.0) >= least]
+    return tuple(sorted(rows, key=lambda node: -abs(node.time_constant_s or 0.0)))
+
+
+def budget(review: Review) -> Grid:
+    """Give per node that counts R, C and R·C by hand and exact with its share of the sum, and its capacitances."""
+    nodes = counting_nodes(review)
+    rows = _node_rows(nodes, review)
+    sums = review.budget.upper
+    others = len([node for node in review.nodes if node.in_path]) - len(nodes)
+    if sums is not None and sums.path_sum_s is not None:
+        name = "Sum, nodes not shown included" if others else "Sum"
+        cells = (name, "", "", "", number(sums.path_sum_s, "s"), _exact_sum(review, sums.path_sum_s), "100 %", "")
+        rows.append(GridRow(cells, "sum"))
+    solved = any(node.working is not None and node.working.source == "solved" for node in nodes)
+    return Grid(
+        "Time-constant budget of the upper edge, by signal node",
+        BUDGET_COLUMNS,
+        tuple(rows),
+        f"{SOLVED} solved exactly: no hand rule fits this node." if solved else "",
+    )
+
+
+def smaller_nodes(review: Review) -> Grid:
+    """Give the nodes that hardly count and those that no signal passes, in the same columns."""
+    shown = {node.name for node in counting_nodes(review)}
+    rest = [node for node in review.nodes if node.name not in shown]
+    rest.sort(key=lambda node: (not node.in_path, -abs(node.time_constant_s or 0.0)))
+    return Grid(
+        "Nodes that hardly count, and nodes off the signal path", BUDGET_COLUMNS, tuple(_node_rows(rest, review))
+    )
+
+
+BUDGET_COLUMNS = columns(
+    "Node and its capacitances",
+    "R by hand",
+    "R exact",
+    "C",
+    "R·C by hand",
+    "R·C exact",
+    "of the sum",
+    "1 pF more: f_H",
+)
+
+
+def shares(review: Review) -> Grid:
+    """Give every part's share of f_H, and f_H recomputed with 10 % less of it."""
+    exact = review.f_high.exact_hz if review.f_high else None
+    titles = part_titles(review.parts)
+    ordered = by_share(review)
+    shown = [part for part in ordered[:SHARES] if abs(part.share.f_high or 0.0) >= WORTH_A_ROW]
+    rows = [
+        GridRow(
+            (
+                titles[part.name],
+                amount(part),
+                share(part.share.f_high),
+                number(part.ten_percent_less.f_high_hz, "Hz"),
+                _change(part.ten_percent_less.f_high_hz, exact),
+            ),
+            part=part.name,
+        )
+        for part in shown
+    ]
+    rest = ordered[len(shown) :]
+    if rest:
+        total = math.fsum(part.share.f_high or 0.0 for part in rest)
+        name = "1 other" if len(rest) == 1 else f"{len(rest)} others together"
+        rows.append(GridRow((name, "", share(total), "", "")))
+    heads = columns("Capacitance or inductance", "value", "share of f_H", "10 % less of it: f_H", "change")
+    return Grid("Share of every capacitance and inductance in the upper edge", heads, tuple(rows))
+
+
+def by_share(review: Review) -> list[PartRow]:
+    """Give the parts with a share of f_H, largest first."""
+    return sorted(
+        (part for part in review.parts if part.share.f_high is not None),
+        key=lambda part: -abs(part.share.f_high or 0.0),
+    )
+
+
+def term_text(term: CapacitanceTerm) -> str:
+    """Write a capacitance with its Miller factor where it has one: "1.20 pF × 115.8 = 138.7 pF"."""
+    if abs(term.factor - 1.0) < 5e-4:
+        return number(term.farad, "F")
+    return f"{number(term.farad, 'F', 3)} × {term.factor:.4g} = {number(term.farad * term.factor, 'F')}"
+
+
+def term_seconds(term: CapacitanceTerm, node: NodeRow) -> float:
+    """Give what one capacitance adds to its node, with the resistance that it faces itself."""
+    if term.time_constant_s is not None:
+        return term.time_constant_s
+    return (node.resistance_hand_ohm or 0.0) * term.farad * term.factor
+
+
+def _node_rows(nodes: Iterable[NodeRow], review: Review) -> list[GridRow]:
+    titles = part_titles(review.parts)
+    exact = review.f_high.exact_hz if review.f_high else None
+    whole = whole_s(review)
+    rows: list[GridRow] = []
+    for node in nodes:
+        solved = f" {SOLVED}" if node.working is not None and node.working.source == "solved" else ""
+        cost = node.per_farad.f_high
+        rows.append(
+            GridRow(
+                (
+                    node.title if node.in_path else f"{node.title}, off the path",
+                    number(node.resistance_hand_ohm, "Ω") + solved,
+                    number(node.resistance_exact_ohm, "Ω"),
+                    number(node.capacitance_f, "F"),
+                    number(node.time_constant_s, "s"),
+                    number(node.time_constant_exact_s, "s"),
+                    _of(node.time_constant_s, whole) if node.in_path else NO_NUMBER,
+                    move(cost * PICOFARAD / exact) if cost is not None and exact else NO_NUMBER,
+                ),
+                part=node.name,
+            )
+        )
+        rows.extend(_term_rows(node, titles, whole))
+    return rows
+
+
+def _term_rows(node: NodeRow, titles: Mapping[str, str], whole: float) -> list[GridRow]:
+    terms = node.working.capacitances if node.working is not None else ()
+    if len(terms) < 2 and all(abs(term.factor - 1.0) < 5e-4 for term in terms):
+        return [_term_row(term, node, titles, whole) for term in terms]
+    ordered = sorted(terms, key=lambda term: -abs(term_seconds(term, node)))
+    return [_term_row(term, node, titles, whole) for term in ordered]
+
+
+def _term_row(term: CapacitanceTerm, node: NodeRow, titles: Mapping[str, str], whole: float) -> GridRow:
+    seconds = term_seconds(term, node)
+    times = "" if abs(term.factor - 1.0) < 5e-4 else f", {number(term.farad, 'F', 3)} × {term.factor:.4g}"
+    cells = (
+        titles.get(term.part, term.part) + times,
+        "",
+        "",
+        number(term.farad * term.factor, "F"),
+        number(seconds, "s"),
+        "",
+        _of(seconds, whole) if node.in_path else "",
+        "",
+    )
+    return GridRow(cells, "part", term.part)
+
+
+def _exact_sum(review: Review, path_sum_s: float) -> str:
+    """Give the exact sum where the hand sum is the plain one; a pair's halves are counted once, and it is left out."""
+    counted = [node for node in review.nodes if node.in_path]
+    by_hand = math.fsum(node.time_constant_s or 0.0 for node in counted)
+    if not math.isclose(by_hand, path_sum_s, rel_tol=1e-6):
+        return ""
+    return number(math.fsum(node.time_constant_exact_s or 0.0 for node in counted), "s")
+
+
+def _of(seconds: float | None, whole: float) -> str:
+    return fraction(seconds / whole) if seconds is not None and whole else NO_NUMBER
+
+
+def _change(less: float | None, exact: float | None) -> str:
+    return move(less / exact - 1.0) if less is not None and exact else NO_NUMBER

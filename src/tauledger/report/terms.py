@@ -1,0 +1,56 @@
+"""The terms of the report, each explained once, in a sentence or two, where it first comes up."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable
+
+TERMS = {
+    "Mid-band": "the plateau of highest gain. Everything else is referred to the gain there.",
+    "Band edge": "f_L and f_H are where the gain has fallen by 3 dB below mid-band, going down and going up.",
+    "By hand, exact, simulated": (
+        "by hand is what one writes on paper, exact is algebra on the small-signal network that was rebuilt "
+        "from the operating point, simulated is the sweep of ngspice."
+    ),
+    "Signal node": (
+        "the netlist nodes that are one at mid-band, joined by coupling capacitors; a transistor's inner node "
+        "belongs to its terminal."
+    ),
+    "R": "the resistance that a capacitance at the node faces, looking into everything connected there.",
+    "Time constant": "R·C of one node. The larger it is, the lower the frequency where the node stops following.",
+    "Miller factor": (
+        "a capacitance between two nodes that move against each other counts (1 − K) times at the first; K is "
+        "the gain from there to its other end."
+    ),
+    "1 pF more": "what one more picofarad from that node to ground, a probe or a longer trace, does to f_H.",
+    "Share": (
+        "how much of f_H one capacitance decides: a share of 40 % means that 1 % less of it raises f_H by "
+        "about 0.4 %. Exact, and all shares together make 100 %. A negative share speeds up."
+    ),
+    "Lowest node alone": "the estimate that takes the largest time constant and forgets the others.",
+    "Sum of time constants": (
+        "the estimate 1/(2π·Σ R·C). It takes every node and stays a little below the truth as long as the "
+        "poles are real."
+    ),
+    "σ": (
+        "how strongly the capacitances load each other: 1 means not at all, a small number that the poles "
+        "have moved far apart."
+    ),
+    "Pole, zero": "frequencies that shape the response: the gain begins to fall at a pole and to rise at a zero.",
+    "Edge alone": "1/(2π·R·C) of one capacitor with all the others taken as shorts.",
+    "Bypass zero": "below it a bypass capacitor no longer shorts its resistor and the gain levels off.",
+    "gm, r_π, r_o, C_π, C_μ, f_T": (
+        "transconductance, input and output resistance, base-emitter and base-collector capacitance, and the "
+        "frequency where the current gain is one."
+    ),
+    "Agreement": (
+        "the largest relative difference between the response of the rebuilt network and the sweep of ngspice."
+    ),
+    "Recomputed": "the whole network solved again with that part changed, the operating point held.",
+}
+
+
+def unexplained(wanted: Iterable[str], explained: set[str]) -> tuple[tuple[str, str], ...]:
+    """Give the terms not yet explained with their sentences, and note in `explained` that they are now."""
+    fresh = [term for term in wanted if term not in explained]
+    explained.update(fresh)
+    return tuple((term, TERMS[term]) for term in fresh)
