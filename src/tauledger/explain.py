@@ -29,12 +29,14 @@ from tauledger.hand.steps import lower_steps, upper_steps
 from tauledger.network.constants import OpenConstants, open_constants
 from tauledger.network.edges import Edge
 from tauledger.network.identities import (
+    ON_THE_AXIS,
     Identity,
     check,
     open_identities,
     response_identities,
     share_identities,
     short_identities,
+    weight_identities,
 )
 from tauledger.network.lower import ShortConstants, short_constants
 from tauledger.network.recompute import EdgeFrequencies, each_scaled
@@ -86,7 +88,7 @@ def explain(numbers: Numbers) -> Explanation:
     open_rows, short_rows, hand, upper, lower = None, None, None, None, None
     if worked:
         open_rows, short_rows = open_constants(bands), short_constants(bands)
-        check((*open_identities(open_rows), *short_identities(short_rows)))
+        check((*open_identities(open_rows), *weight_identities(bands, open_rows), *short_identities(short_rows)))
         hand, upper, lower = _by_hand(numbers, open_rows)
     evidence = Evidence(
         bands=bands,
@@ -138,7 +140,7 @@ def _shares(numbers: Numbers, edge: Edge | None) -> Shares | None:
         return None
     shares = find_shares(numbers.network, numbers.midband, edge.hz, numbers.bands.class_of)
     # the edge's slope was reached by another solution than the shares'
-    same_slope = Identity("slope by the shares = slope at the edge", shares.slope, edge.slope or 0.0, 1e-9, 1.0)
+    same_slope = Identity("slope by the shares = slope at the edge", shares.slope, edge.slope or 0.0, ON_THE_AXIS, 1.0)
     check((*share_identities(shares), same_slope))
     return shares
 
@@ -146,7 +148,7 @@ def _shares(numbers: Numbers, edge: Edge | None) -> Shares | None:
 def _roots(numbers: Numbers) -> tuple[Complex, Complex]:
     """Give poles and zeros of the full network in rad/s, both members of every complex pair."""
     both = [
-        [s for root in roots for s in ((root.s, root.s.conjugate()) if root.s.imag else (root.s,))]
+        [s for root in roots for s in ((root.s, root.s.conjugate()) if root.paired else (root.s,))]
         for roots in (numbers.poles.poles, numbers.poles.zeros)
     ]
     return np.array(both[0], dtype=complex), np.array(both[1], dtype=complex)

@@ -259,3 +259,17 @@ def test_upper_network_at_dc_and_lower_network_at_infinity_are_both_the_mid_band
     assert response(bands.lower, np.array([far]))[0] == pytest.approx(gain, rel=1e-5)
     if bands.sound:
         assert abs(gain) == pytest.approx(abs(bands.midband.gain), rel=0.02)
+
+
+def test_an_inductor_in_series_with_an_open_capacitor_is_a_short() -> None:
+    """A probe's lead: what its current could be beyond all poles is set by the capacitor alone."""
+    network = Network.from_parts(
+        [
+            *amplifiers.coupled_stage().parts,
+            inductance("LP", "out", "tip", 100e-9),
+            capacitance("CP", "tip", "0", 10e-12),
+        ],
+        output=Port("out"),
+    )
+    bands = classify(network, find_midband(network))
+    assert (bands.class_of["LP"], bands.class_of["CP"]) == ("short", "open")

@@ -171,3 +171,23 @@ def test_the_reference_lies_on_its_plateau(network: Network) -> None:
     midband = find_midband(network)
     if midband.from_hz is not None and midband.to_hz is not None:
         assert midband.from_hz <= midband.frequency_hz <= midband.to_hz
+
+
+def test_what_leaks_past_a_narrow_band_is_no_mid_band() -> None:
+    """A band of 2:1 has no plateau; the feed-through far above it is flat, but 60 dB down."""
+    network = Network.from_parts(
+        [
+            voltage_source("VS", "s", "0", 1.0),
+            resistance("RS", "s", "a", 1e3),
+            capacitance("C1", "a", "b", 8e-9),
+            resistance("RB", "b", "0", 9e3),
+            transconductance("GM", ("c", "0"), ("b", "0"), 20e-3, "gm"),
+            resistance("RC", "c", "0", 5e3),
+            capacitance("CL", "c", "0", 10e-9),
+            capacitance("CF", "b", "c", 1e-12),
+        ],
+        output=Port("c"),
+    )
+    midband = find_midband(network)
+    assert not midband.plateau
+    assert 1e3 < midband.frequency_hz < 1e4

@@ -221,7 +221,17 @@ def _ratios(network: Network, frequency_hz: float) -> dict[str, float]:
     except NetworkError:
         limit = first
     alone = {part.name: seen[part.name] * abs(value[part.name]) for part in parts if part.name in bridged}
-    ratios = {part.name: float(seen[part.name] / limit[part.name]) for part in parts if part.name not in idle}
+    # An inductor whose current an open capacitor alone can carry has no limit beyond all poles: it is as if alone.
+    alone |= {
+        part.name: seen[part.name] * abs(value[part.name])
+        for part in parts
+        if part.name not in idle and limit[part.name] == 0.0
+    }
+    ratios = {
+        part.name: float(seen[part.name] / limit[part.name])
+        for part in parts
+        if part.name not in idle and part.name not in alone
+    }
     return {part.name: 0.0 for part in parts} | ratios | alone
 
 

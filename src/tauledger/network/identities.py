@@ -11,13 +11,15 @@ from collections.abc import Iterable
 import numpy as np
 from msgspec import Struct
 
+from tauledger.devices.parts import voltage_source
 from tauledger.errors import NetworkError
-from tauledger.network.assemble import Network
+from tauledger.network.assemble import Network, assemble
+from tauledger.network.bands import Bands
 from tauledger.network.constants import OpenConstants, group_delay
 from tauledger.network.lower import ShortConstants
 from tauledger.network.midband import MidBand
 from tauledger.network.shares import Shares
-from tauledger.network.solve import log_slope, on_axis, solve
+from tauledger.network.solve import log_slope, on_axis, response, solve
 
 SUMS = 1e-9
 # A coupling capacitor of 100 µF is 10⁶ S at a few GHz: rounding alone makes 1e-8 of the currents beside it.
@@ -72,6 +74,28 @@ def open_identities(constants: OpenConstants) -> tuple[Identity, ...]:
             weighted,
         ),
     )
+
+
+def weight_identities(bands: Bands, constants: OpenConstants) -> tuple[Identity, ...]:
+    """w = 1 − H^i/H^0 with H^i solved anew, the part shorted by a source of 0 V: the heaviest part and the lightest.
+
+    Two of them, for each costs a network; nothing where capacitors set the gain, for there the weights are complex.
+    """
+    if bands.s_mid:
+        return ()
+    rows = sorted(
+        (row for row in constants.parts if row.kind == "capacitance" and row.time_constant_s > 0.0),
+        key=lambda row: abs(row.delay_s),
+    )
+    upper = bands.upper
+    gain = complex(response(upper, np.zeros(1))[0])
+    found = []
+    for row in dict.fromkeys((*rows[:1], *rows[-1:])):
+        short = voltage_source(f"short of {row.name}", *row.nodes)
+        shorted = complex(response(assemble((*upper.parts, short), upper.port, upper.amplitudes), np.zeros(1))[0])
+        weight = 1.0 - (shorted / gain).real
+        found.append(Identity(f"weight of {row.name} = gain lost when shorted", row.weight, weight, POLES, 1.0))
+    return tuple(found)
 
 
 def short_identities(constants: ShortConstants) -> tuple[Identity, ...]:

@@ -19,6 +19,9 @@ POINTS_PER_DECADE = 40
 MARGIN = 1e3
 CONSTANT_RANGE_HZ = (1.0, 10.0)
 NO_SIGNAL = 1e-14
+FAR_BELOW = 0.1
+FAR_BELOW_A_RESONANCE = 0.01
+HIGHEST_HZ = 1e12
 
 
 class MidBand(Struct, frozen=True):
@@ -40,11 +43,12 @@ class MidBand(Struct, frozen=True):
 
 
 class _Scan(Struct, frozen=True):
-    """|H| and its exact logarithmic slope over frequency: each (k,)."""
+    """|H| and its exact logarithmic slope over frequency: each (k,). resonant: a sharp pair makes the highest gain."""
 
     frequency_hz: Real
     magnitude: Real
     slope: Real
+    resonant: bool
 
 
 class _Plateau(Struct, frozen=True):
@@ -71,8 +75,10 @@ def find_midband(network: Network, *, at_hz: float | None = None) -> MidBand:
     Among plateaus within 3 dB of the highest gain the widest is taken. The reference is 0 where that plateau reaches
     DC, else the stationary point of |H| nearest its middle, so that it does not move to first order (where |H| has none
     but a peak at the plateau's end, the flattest point); without a plateau it is the maximum of |H|.
-    Raises InputError where at_hz is negative, and where no signal passes there or anywhere; NetworkError where the
-    network has no unique solution.
+    A plateau more than 20 dB below the highest gain (40 dB where a resonance makes that) is what leaks past the
+    amplifier, no mid-band.
+    Raises InputError where at_hz is negative or beyond 1 THz, and where no signal passes there or anywhere;
+    NetworkError where the network has no unique solution.
     """
     scan = _scan(network)
     plateaus = _plateaus(network, scan)
@@ -111,7 +117,17 @@ def _scan(network: Network) -> _Scan:
     low, high = frequency_range(poles, zeros) or CONSTANT_RANGE_HZ
     frequency = frequency_grid(low, high, POINTS_PER_DECADE, np.concatenate([poles, zeros]))
     solution = solve(network, on_axis(frequency))
-    return _Scan(frequency, np.abs(solution.response), log_slope(network, solution).real)
+    magnitude = np.abs(solution.response)
+    return _Scan(
+        frequency, magnitude, log_slope(network, solution).real, _resonant(poles, frequency[magnitude.argmax()])
+    )
+
+
+def _resonant(poles: Complex, peak_hz: float) -> bool:
+    """Whether a pair of poles of Q above 3 makes the highest gain."""
+    omega = np.abs(poles)
+    sharp = omega > 6.0 * np.abs(poles.real)
+    return bool(np.any(sharp & (np.abs(omega / (2.0 * np.pi * peak_hz) - 1.0) < 0.2)))
 
 
 def _require_signal(network: Network, poles: Complex) -> None:
@@ -130,7 +146,8 @@ def _plateaus(network: Network, scan: _Scan) -> list[_Plateau]:
     flat = np.concatenate([[False], np.abs(scan.slope) <= FLAT_SLOPE, [False]])
     starts, stops = np.flatnonzero(~flat[:-1] & flat[1:]), np.flatnonzero(flat[:-1] & ~flat[1:]) - 1
     found = [_plateau(network, scan, int(first), int(last)) for first, last in zip(starts, stops, strict=True)]
-    return [plateau for plateau in found if plateau.decades >= PLATEAU_DECADES]
+    floor = float(scan.magnitude.max()) * (FAR_BELOW_A_RESONANCE if scan.resonant else FAR_BELOW)
+    return [plateau for plateau in found if plateau.decades >= PLATEAU_DECADES and plateau.gain >= floor]
 
 
 def _plateau(network: Network, scan: _Scan, first: int, last: int) -> _Plateau:
@@ -202,8 +219,8 @@ def _direct(network: Network) -> bool:
 
 
 def _at(network: Network, at_hz: float, plateaus: list[_Plateau]) -> MidBand:
-    if not (np.isfinite(at_hz) and at_hz >= 0.0):
-        raise InputError(f"mid-band cannot be at {at_hz:g} Hz", "give a frequency of 0 Hz or more, e.g. 10k")
+    if not 0.0 <= at_hz <= HIGHEST_HZ:
+        raise InputError(f"mid-band cannot be at {at_hz:g} Hz", "give a frequency from 0 Hz to 1 THz, e.g. 10k")
     if at_hz == 0.0 and not _direct(network):
         raise InputError("mid-band cannot be at 0 Hz: nothing passes there", "give a frequency in the band, e.g. 10k")
     gain = complex(response(network, np.array([at_hz]))[0])

@@ -23,6 +23,7 @@ from tauledger.network.spectrum import pole_frequencies, zero_frequencies
 
 CANCEL_WITHIN = 0.02
 DEFECTIVE = 1e-6
+SAME_ROOT = 1e-6
 BESIDE = 1e-9
 GOLDEN = 0.5 * (np.sqrt(5.0) - 1.0)
 
@@ -40,12 +41,21 @@ class Pole(Struct, frozen=True):
     f0_hz: float | None = None
     q: float | None = None
 
+    @property
+    def paired(self) -> bool:
+        """Whether its conjugate is a pole as well: poles are those of a real network."""
+        return self.s.imag != 0.0
+
 
 class Zero(Struct, frozen=True):
-    """One zero of the transfer function, s in rad/s; of a complex pair the one above the axis."""
+    """One zero of the transfer function, s in rad/s; of a complex pair the one above the axis.
+
+    paired: its conjugate is a zero as well. Sources that drive with different phases make zeros that stand alone.
+    """
 
     s: complex
     cancelled: bool
+    paired: bool = False
 
 
 class PoleZeroMap(Struct, frozen=True):
@@ -69,8 +79,21 @@ def find_poles(network: Network) -> PoleZeroMap:
     poles = tuple(
         _pole(complex(p[k]), owners[k], bool(pole_cancelled[k])) for k in range(len(p)) if complex(p[k]).imag >= 0.0
     )
-    zeros = tuple(Zero(complex(z[k]), bool(zero_cancelled[k])) for k in range(len(z)) if complex(z[k]).imag >= 0.0)
+    paired = _paired(z)
+    zeros = tuple(
+        Zero(complex(z[k]), bool(zero_cancelled[k]), bool(paired[k]))
+        for k in range(len(z))
+        if complex(z[k]).imag >= 0.0 or not paired[k]
+    )
     return PoleZeroMap(poles, zeros, bool(np.all(p.real <= 0.0)))
+
+
+def _paired(roots: Complex) -> NDArray[np.bool_]:
+    """Tell which roots (k,) have their conjugate among the others."""
+    gap = np.abs(roots[:, None] - roots.conj()[None, :])
+    twin: NDArray[np.bool_] = np.any(gap <= SAME_ROOT * np.abs(roots)[:, None], axis=1)
+    both: NDArray[np.bool_] = np.logical_and(roots.imag != 0.0, twin)
+    return both
 
 
 def cancelled_pairs(poles: Complex, zeros: Complex) -> tuple[NDArray[np.bool_], NDArray[np.bool_]]:
