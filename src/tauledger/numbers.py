@@ -87,19 +87,7 @@ def solve(
     agreed = agreement(grid, response(network, grid), simulated.sweep.response, numbers.midband.gain)
     if agreed.max_relative_error > DISAGREES:
         simulated = simulate(engine.sweep, grid, midband=None)
-    return Numbers(
-        network=network,
-        midband=numbers.midband,
-        bands=numbers.bands,
-        edges=numbers.edges,
-        poles=numbers.poles,
-        devices=linearised.devices,
-        circuit=circuit,
-        bias=bias,
-        simulated=simulated,
-        agreement=agreed,
-        midband_chosen=midband_hz is not None,
-    )
+    return replace(numbers, circuit=circuit, bias=bias, simulated=simulated, agreement=agreed)
 
 
 def solve_network(network: Network, *, devices: tuple[Device, ...] = (), midband_hz: float | None = None) -> Numbers:

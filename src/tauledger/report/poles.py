@@ -40,7 +40,8 @@ def _shown_poles(review: Review, *, verbose: bool) -> list[PoleFacts]:
     if verbose:
         return ordered
     low, high = _band(review)
-    centre = math.sqrt(low * high) if low > 0.0 and math.isfinite(high) else low or high
+    # without a lower edge every pole belongs to the upper one, and the other way round
+    centre = math.sqrt(low * high) if low > 0.0 else 0.0
     visible = [pole for pole in ordered if not pole.cancelled and _size(pole) > 0.0]
     below = [pole for pole in reversed(visible) if _size(pole) < centre]
     above = [pole for pole in visible if _size(pole) >= centre]
