@@ -83,4 +83,78 @@ R1 in a {g(1)}
 R2 a 0 {load}
 X4 a tail
 """,
+    "binned models": """bins
+VDD vdd 0 3
+V1 in 0 1.2 AC 1
+M1 a in 0 0 nch l=0.5u w=5u
+R1 vdd a 10k
+M2 b in 0 0 nch l=2u w=5u
+R2 vdd b 10k
+M4 d in 0 0 nch l=1u w=5u
+R4 vdd d 10k
+M5 e in 0 0 fin l=0.1u w=10u nf=4
+R5 vdd e 10k
+X1 in f cell
+R6 vdd f 10k
+.subckt cell g d
+M1 d g 0 0 nch l=1.5u w=5u
+M2 d g 0 0 own l=1.5u w=5u
+.model own.1 nmos level=8 version=3.3.0 lmin=1u lmax=2u wmin=1u wmax=100u vth0=0.9
+.ends
+.model nch.1 nmos level=8 version=3.3.0 lmin=0.1u lmax=1u wmin=1u wmax=100u vth0=0.5
+.model nch.2 nmos level=8 version=3.3.0 lmin=1u lmax=10u wmin=1u wmax=100u vth0=0.8
+.model fin.1 nmos level=14 version=4.8 lmin=0.05u lmax=1u wmin=1u wmax=5u vth0=0.4
+.model fin.2 nmos level=14 version=4.8 lmin=0.05u lmax=1u wmin=5u wmax=100u vth0=0.7
+""",
+    "sizes under an option": """scaled
+.options scale=1u
+VDD vdd 0 3
+V1 in 0 1.2 AC 1
+M1 a in 0 0 n1 l=2 w=20 ad=20 as=20 pd=20 ps=20
+R1 vdd a 10k
+M2 b in 0 0 n8 l=2 w=20 ad=20 as=20 pd=20 ps=20
+R2 vdd b 10k
+M3 c in 0 0 n14 l=2 w=20 ad=20 as=20 pd=20 ps=20 sa=2 sb=2
+R3 vdd c 10k
+R4 in d rr l=10 w=2
+R5 d 0 1k
+C1 in f cc l=10 w=2
+R7 f 0 1k
+C2 in f 1n
+.model rr r rsh=100
+.model cc c cj=1m
+.model n1 nmos level=1 kp=100u vto=0.7 cj=1m cjsw=1n
+.model n8 nmos level=8 version=3.3.0
+.model n14 nmos level=14
+""",
+    "starting voltages choose the state": """bistable
+V1 vcc 0 5 AC 1
+R1 vcc a 1k
+R2 vcc b 1k
+X1 a b latch
+.param high=5
+.subckt latch a b
+Q1 a bb 0 q
+Q2 b ab 0 q
+R3 a ab 10k
+R4 b bb 10k
+.nodeset v(ab)=1
+.ends
+.ic v(a)=0 v(b)=5
+.nodeset v(a)={high} V(b) = 0 v(x1.bb)=0
+.model q npn bf=100
+""",
+    "global nodes win over ports": """globals
+V1 vdd 0 3 AC 1
+R1 vdd a 1k
+X1 a vee cell
+R2 vee 0 3k
+.global vdd
+.global vee sub!
+R3 sub! 0 1k
+.subckt cell y vdd
+R1 y vdd 1k
+R2 y sub! 2k
+.ends
+""",
 }

@@ -232,7 +232,7 @@ class Circuit(Struct, frozen=True):
     temperature_c, tnom_c: analysis and nominal temperature in °C. options: (name, value) of those options that
     change
     the result (gmin). models: by flat name. instances: number 0 is the netlist itself. notes: how the netlist was read
-    where that needs saying.
+    where that needs saying. nodesets: (node number, volt) from which the search for the operating point starts.
     """
 
     title: str
@@ -247,6 +247,7 @@ class Circuit(Struct, frozen=True):
     options: tuple[tuple[str, float], ...] = field(default=())
     instances: tuple[Instance, ...] = ()
     notes: tuple[ReadingNote, ...] = ()
+    nodesets: tuple[tuple[int, float], ...] = ()
 
     def model(self, name: str) -> Model:
         """Give the model with this flat name; KeyError where there is none."""

@@ -1,4 +1,4 @@
-"""The assignments of `.param` and `.func` cards: NAME=VALUE and NAME(X,Y)=BODY.
+"""The assignments of `.param`, `.func` and `.nodeset` cards: NAME=VALUE, NAME(X,Y)=BODY, V(NODE)=VALUE.
 
 A value is a number, a bare formula without blanks outside parentheses, or a formula in braces or quotes.
 """
@@ -8,12 +8,15 @@ from __future__ import annotations
 import re
 
 from tauledger.errors import NetlistError
-from tauledger.netlist.behaviour import parse_behaviour
+from tauledger.netlist.behaviour import OF_THE_RUN, parse_behaviour
 from tauledger.netlist.diagnostics import Site
 from tauledger.netlist.expressions import parse_formula
 from tauledger.netlist.items import Function, Item, Setting, Value, Word
 
 _NAME = re.compile(r"[A-Za-z_][A-Za-z0-9_]*")
+_NODE = re.compile(r"(?:v\s*\(\s*([^(),\s]+)\s*\)|all)\s*=", re.IGNORECASE)
+# No node can have this name.
+ALL = "v(*)"
 _CLOSING = {"{": "}", "'": "'", '"': '"'}
 
 
@@ -65,6 +68,23 @@ def parse_functions(site: Site) -> tuple[Item, ...]:
     return (Word(word, 0), function)
 
 
+def parse_nodesets(site: Site) -> tuple[Item, ...]:
+    """Give the items of a `.nodeset` card: its word and a setting for each v(node)=value; ALL names them all."""
+    text = site.card.text
+    word = text.split(maxsplit=1)[0]
+    items: list[Item] = [Word(word, 0)]
+    at = _skip(text, len(word))
+    while at < len(text):
+        match = _NODE.match(text, at)
+        if match is None:
+            raise site.fault(at, "v(node)=value is expected here", "write .nodeset v(out)=2.5")
+        name = Word(match.group(1), match.start(1)) if match.group(1) else Word(ALL, at)
+        value, at = _value(site, _skip(text, match.end()))
+        items.append(Setting(name, value))
+        at = _skip(text, at)
+    return tuple(items)
+
+
 def _function(site: Site, name: Word, opening: int) -> tuple[Function, int]:
     """Read the arguments that begin at `opening` and the body; give the offset behind it."""
     text = site.card.text
@@ -86,14 +106,13 @@ def _function(site: Site, name: Word, opening: int) -> tuple[Function, int]:
         raise site.fault(start, f"this is not closed: {quote} is missing")
     inner = start + len(quote)
     body = text[inner:end]
-    try:
-        formula = parse_formula(site, body, start, inner)
-    except NetlistError:
-        # What only a source can mean, such as a voltage, is no formula of numbers.
+    if OF_THE_RUN.search(body):
         return Function(name, parameters, None, parse_behaviour(site, body, start, inner)), end + len(quote)
+    formula = parse_formula(site, body, start, inner)
     try:
         behaviour = parse_behaviour(site, body, start, inner)
     except NetlistError:
+        # The numeric dialect has operators that a source does not have.
         return Function(name, parameters, formula, None), end + len(quote)
     return Function(name, parameters, formula, behaviour), end + len(quote)
 

@@ -8,7 +8,8 @@ name.
 from __future__ import annotations
 
 import math
-from collections.abc import Callable, Mapping, Sequence
+import re
+from collections.abc import Callable, Iterable, Mapping, Sequence
 from functools import cache
 from types import SimpleNamespace
 from typing import TYPE_CHECKING, Any
@@ -20,10 +21,13 @@ from tauledger.netlist.diagnostics import Site, nearest
 from tauledger.netlist.expressions import advice, check_length
 from tauledger.netlist.formulas import Behaviour, Call, Name, Number, Operation, Probe, Tree
 from tauledger.netlist.numbers import read_number
-from tauledger.netlist.scopes import Scope, check_call, find, find_function, known_names
+from tauledger.netlist.scopes import Scope, check_call, find, find_function, known_functions, known_names
 
 if TYPE_CHECKING:
     from lark import Lark, Token
+
+# What makes a formula a behavioural one: it can only be worked out during the run.
+OF_THE_RUN = re.compile(r"(?<![\w.])(?:[vi]\s*\(|(?:temper|hertz|time)\b)", re.IGNORECASE)
 
 CONSTANTS = {"pi": math.pi, "e": math.e}
 VARIABLES = frozenset({"temper", "hertz", "time"})
@@ -33,6 +37,8 @@ u u2 uramp ddt eq0 ne0 gt0 lt0 ge0 le0"""
 # Number of arguments; pwl takes a variable and pairs.
 FUNCTIONS: dict[str, int] = dict.fromkeys(_ONE.split(), 1)
 FUNCTIONS |= {"min": 2, "max": 2, "pow": 2, "pwr": 2, "ternary_fcn": 3, "pwl": -1}
+
+Fault = Callable[[Tree, str, str], NetlistError]
 
 _SAME = {"**": "^", "<>": "!=", "negative": "-", "?": "?:"}
 
@@ -82,69 +88,72 @@ def formula_of(
     Raises NetlistError for a name or function that is not known and for a wrong number of arguments.
     """
 
-    def fault(tree: Tree, message: str, hint: str = "") -> NetlistError:
-        wide = len(tree.text) if isinstance(tree, Name) else len(tree.function) if isinstance(tree, Call) else 1
-        return site.fault(expression.inner + tree.at, message, hint, wide=wide)
-
-    def function_of(tree: Call, given: Mapping[str, circuit.Formula]) -> circuit.Formula | None:
-        known = find_function(scope, fold(tree.function))
-        if known is None:
-            return None
-        function = known[1]
-        check_call(scope, tree, function, lambda message, hint: fault(tree, message, hint))
-        if function.behaviour is None:
-            raise fault(tree, f"{function.name.text} has no meaning in a source", "its body is of the other dialect")
-        arguments = dict(zip(map(fold, function.parameters), (convert(a, given) for a in tree.arguments), strict=True))
-        found = convert(function.behaviour.tree, arguments)
-        scope.calls[tree.function] -= 1
-        return found
-
-    def convert(tree: Tree, given: Mapping[str, circuit.Formula]) -> circuit.Formula:
+    def convert(tree: Tree, given: Mapping[str, circuit.Formula], fault: Fault) -> circuit.Formula:
         match tree:
             case Number(value=value):
                 return circuit.Number(value)
             case Name(text=text):
-                key = fold(text)
-                if key in given:
-                    return given[key]
-                if key in CONSTANTS:
-                    return circuit.Number(CONSTANTS[key])
-                if key in VARIABLES:
-                    return circuit.Variable(key)
-                value_of = find(scope, key)
-                if value_of is None:
-                    hint = nearest(text, known_names(scope), otherwise=f"write v({text}) for the voltage of a node")
-                    raise fault(tree, f"no parameter is called {text!r}", hint)
-                return circuit.Number(value_of)
+                return named(tree, fold(text), given, fault)
             case Probe(kind="i", names=names):
                 return circuit.Current(source(names[0]))
             case Probe(names=names):
                 return circuit.Voltage(node(names[0]), node(names[1]) if len(names) > 1 else 0)
             case Operation(operator="positive", operands=(inner,)):
-                return convert(inner, given)
+                return convert(inner, given, fault)
             case Operation(operator="negative", operands=(Number(value=value),)):
                 return circuit.Number(-value)
             case Operation(operator=sign, operands=operands):
-                return circuit.Apply(_SAME.get(sign, sign), tuple(convert(part, given) for part in operands))
-            case Call(function=name, arguments=arguments):
-                own = function_of(tree, given)
-                if own is not None:
-                    return own
-                _check_call(tree, fault)
-                return circuit.Apply(fold(name), tuple(convert(part, given) for part in arguments))
+                return circuit.Apply(_SAME.get(sign, sign), tuple(convert(part, given, fault) for part in operands))
+            case Call():
+                return called(tree, tuple(convert(part, given, fault) for part in tree.arguments), fault)
         raise TypeError(tree)
 
-    return convert(expression.tree, {})
+    def named(tree: Name, key: str, given: Mapping[str, circuit.Formula], fault: Fault) -> circuit.Formula:
+        if key in given:
+            return given[key]
+        if key in CONSTANTS:
+            return circuit.Number(CONSTANTS[key])
+        if key in VARIABLES:
+            return circuit.Variable(key)
+        value = find(scope, key)
+        if value is None:
+            hint = nearest(tree.text, known_names(scope), otherwise=f"write v({tree.text}) for the voltage of a node")
+            raise fault(tree, f"no parameter is called {tree.text!r}", hint)
+        return circuit.Number(value)
+
+    def called(tree: Call, arguments: tuple[circuit.Formula, ...], fault: Fault) -> circuit.Formula:
+        known = find_function(scope, fold(tree.function))
+        if known is None:
+            _check_call(tree, fault, known_functions(scope))
+            return circuit.Apply(fold(tree.function), arguments)
+        home, function = known
+        check_call(scope, tree, function, lambda message, hint: fault(tree, message, hint))
+        if function.behaviour is None:
+            raise fault(tree, f"{function.name.text} has no meaning in a source", "its body is of the other dialect")
+        bound = dict(zip(map(fold, function.parameters), arguments, strict=True))
+        found = convert(function.behaviour.tree, bound, _fault_at(home, function.behaviour))
+        scope.calls[tree.function] -= 1
+        return found
+
+    return convert(expression.tree, {}, _fault_at(site, expression))
 
 
-def _check_call(tree: Call, fault: Callable[[Tree, str, str], NetlistError]) -> None:
+def _fault_at(site: Site, expression: Behaviour) -> Fault:
+    def fault(tree: Tree, message: str, hint: str) -> NetlistError:
+        wide = len(tree.text) if isinstance(tree, Name) else len(tree.function) if isinstance(tree, Call) else 1
+        return site.fault(expression.inner + tree.at, message, hint, wide=wide)
+
+    return fault
+
+
+def _check_call(tree: Call, fault: Fault, own: Iterable[str]) -> None:
     name, count = fold(tree.function), len(tree.arguments)
     if name in ("v", "i"):
         message = "the voltage between nodes is v(node) or v(node,node)" if name == "v" else "a current is i(source)"
         raise fault(tree, message, "")
     arity = FUNCTIONS.get(name)
     if arity is None:
-        raise fault(tree, f"no function of a source is called {tree.function!r}", nearest(name, FUNCTIONS))
+        raise fault(tree, f"no function of a source is called {tree.function!r}", nearest(name, [*FUNCTIONS, *own]))
     if arity < 0 and (count < 5 or count % 2 == 0):
         raise fault(tree, "pwl takes a value and at least two pairs of numbers", "write pwl(v(in), -1,-5, 1,5)")
     if arity >= 0 and count != arity:

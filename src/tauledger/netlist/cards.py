@@ -8,7 +8,7 @@ from functools import cache
 from types import SimpleNamespace
 from typing import TYPE_CHECKING, Any, NamedTuple
 
-from tauledger.netlist.behaviour import parse_behaviour
+from tauledger.netlist.behaviour import OF_THE_RUN, parse_behaviour
 from tauledger.netlist.diagnostics import Site
 from tauledger.netlist.expressions import parse_formula
 from tauledger.netlist.items import Group, Item, Quoted, Setting, Word
@@ -35,8 +35,6 @@ _UNCLOSED = {
 }
 
 
-# What makes a formula a behavioural one: it can only be worked out during the run.
-_OF_THE_RUN = re.compile(r"(?<![\w.])(?:[vi]\s*\(|(?:temper|hertz|time)\b)", re.IGNORECASE)
 # The keywords behind which a behavioural expression stands, in braces, quotes or bare, by letter.
 _BEHAVIOURAL = {"B": "v|i", "E": "vol|value", "G": "cur|value", "C": "q"}
 _PIECE = re.compile(r"""'[^']*'|"[^"]*"|\{[^{}]*\}|[()]|(?<![\w.])([A-Za-z]+\w*)\s*(?:=(?!=)\s*|(?=[{'"]))""")
@@ -151,7 +149,7 @@ def parse_card(site: Site, text: str | None = None) -> tuple[Item, ...]:
         if token.type == "TEXT":
             return Quoted(str(token)[1:-1], at)
         given = str(token)[1:-1]
-        if _OF_THE_RUN.search(given) and not text.startswith("."):
+        if OF_THE_RUN.search(given) and not text.startswith("."):
             return parse_behaviour(site, given, at, at + 1)
         return parse_formula(site, given, at, at + 1)
 

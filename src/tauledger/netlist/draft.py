@@ -44,7 +44,8 @@ class Draft(Struct):
 
     numbers: node number by folded flat name. taken: where each flat element name was first used. changed: values of a
     Change by folded name that have not been used yet; used ones are taken out. refusals: what can be read but not
-    reviewed. contexts: per instance the lines that say where it stands.
+    reviewed. nodesets: volt by node number. scale: of the sizes of MOS transistors (.options scale). contexts: per
+    instance the lines that say where it stands.
     """
 
     nodes: list[str] = field(default_factory=lambda: [GROUND])
@@ -58,6 +59,8 @@ class Draft(Struct):
     changed_models: dict[tuple[str, str], tuple[str, str, float]] = field(default_factory=dict)
     fixed: set[str] = field(default_factory=set)
     refusals: list[Diagnostic] = field(default_factory=list)
+    nodesets: dict[int, float] = field(default_factory=dict)
+    scale: float = 1.0
     contexts: list[tuple[str, ...]] = field(default_factory=lambda: [()])
 
 
@@ -137,14 +140,16 @@ def finished(
     tnom_c: float,
     options: tuple[tuple[str, float], ...],
     notes: tuple[ReadingNote, ...],
+    nodesets: tuple[tuple[int, float], ...] = (),
 ) -> Circuit:
-    """Freeze the draft."""
+    """Freeze the draft; models that were read but are not used stay behind."""
+    used = {element.model for element in elements}
     return Circuit(
         title=title,
         nodes=tuple(draft.nodes),
         passives=passives(draft.rows),
         elements=elements,
-        models=tuple(draft.models.values()),
+        models=tuple(model for model in draft.models.values() if model.name in used),
         drive=drive,
         output=output,
         temperature_c=temperature_c,
@@ -152,4 +157,5 @@ def finished(
         options=options,
         instances=tuple(draft.instances),
         notes=notes,
+        nodesets=nodesets,
     )

@@ -17,7 +17,7 @@ from tauledger.netlist.flatten import Surroundings, flatten
 from tauledger.netlist.hints import hints
 from tauledger.netlist.items import Setting, Value, flattened
 from tauledger.netlist.netlist import Netlist
-from tauledger.netlist.options import option_settings, plain_value
+from tauledger.netlist.options import EFFECTIVE, option_settings, plain_value
 from tauledger.netlist.ports import choose_drive, choose_output, driven_as_written, parse_port
 from tauledger.netlist.references import check_references
 from tauledger.netlist.scopes import Scope, work_out_all
@@ -50,6 +50,7 @@ def elaborate(
     faults: list[Diagnostic] = []
     _global_parameters(netlist, change, scope, faults)
     settings = _settings(netlist, change, scope, faults)
+    draft.scale = settings.get("scale", 1.0)
     top = Surroundings(
         definition=netlist.top,
         scope=scope,
@@ -89,7 +90,8 @@ def elaborate(
         temperature_c=settings["temp"],
         tnom_c=settings["tnom"],
         options=tuple((name, settings[name]) for name in ("gmin",) if name in settings),
-        notes=netlist.notes + tuple(scope.notes),
+        notes=tuple(dict.fromkeys(netlist.notes + tuple(scope.notes))),
+        nodesets=tuple(draft.nodesets.items()),
     )
 
 
@@ -119,19 +121,24 @@ def _global_parameters(netlist: Netlist, change: Change, scope: Scope, faults: l
 
 
 def _settings(netlist: Netlist, change: Change, scope: Scope, faults: list[Diagnostic]) -> dict[str, float]:
-    """Give temp and tnom in °C, and gmin in S where it is set; `.temp` wins over `.options temp`, the last counts."""
+    """Give temp and tnom in °C, gmin in S and scale where they are set; `.temp` wins over `.options temp`.
+
+    Of several of one kind the last counts.
+    """
     values = {"temp": ROOM_C, "tnom": ROOM_C}
     for number in netlist.options:
         site = Site(netlist.files, netlist.cards[number])
         for setting in option_settings(site, netlist.items[number]):
             name = fold(setting.name.text)
-            if name not in ("temp", "tnom", "gmin"):
+            if name not in EFFECTIVE:
                 continue
             try:
                 values[name] = plain_value(site, setting.value, scope)
                 if name == "gmin" and not values[name] >= 0.0:
                     raise site.fault(setting.value, "gmin must be 0 or more")
-                if name != "gmin":
+                if name == "scale" and not values[name] > 0.0:
+                    raise site.fault(setting.value, "scale must be greater than 0")
+                if name in ("temp", "tnom"):
                     _check_temperature(site, setting.value, values[name])
             except NetlistError as error:
                 faults.extend(error.diagnostics)

@@ -172,11 +172,12 @@ class Surrounding(Struct, frozen=True):
     """What a formula needs of the place where it stands.
 
     parameter: value of a name. call: value of a function of the user's own, None where there is none of that name.
-    fault: makes the error for a part of the tree. remark: takes what the reader must know about a part of it.
+    functions: names of those. fault: makes the error for a part of the tree. remark: takes what the reader must know.
     """
 
     parameter: Callable[[Name], float]
     call: Callable[[Call, Sequence[float]], float | None]
+    functions: Callable[[], Sequence[str]]
     fault: Callable[[Tree, str, str], NetlistError]
     remark: Callable[[str], None]
 
@@ -211,21 +212,19 @@ def evaluate(tree: Tree, here: Surrounding) -> float:
                 return own
             if name.lower() in ("pow", "pwr") and len(values) == 2 and values[0] < 0.0:
                 here.remark(POWERS[name.lower()])
-            function = _function(tree, name, len(arguments), here.fault)
+            function = _function(tree, name, len(arguments), here)
             return _finite(tree, function, values, here.fault)
     raise TypeError(tree)
 
 
-def _function(
-    tree: Call, name: str, count: int, fault: Callable[[Tree, str, str], NetlistError]
-) -> Callable[..., float]:
-    known = FUNCTIONS.get(name.lower())
+def _function(tree: Call, name: str, count: int, here: Surrounding) -> Callable[..., float]:
+    known, fault = FUNCTIONS.get(name.lower()), here.fault
     if known is None:
         if name.lower() in RANDOM:
             raise fault(
                 tree, f"{name} draws a random number", "a review must come out the same each time: write a value"
             )
-        raise fault(tree, f"no function is called {name!r}", nearest(name, FUNCTIONS))
+        raise fault(tree, f"no function is called {name!r}", nearest(name, [*FUNCTIONS, *here.functions()]))
     arity, function = known
     if count != arity:
         wanted = "1 argument" if arity == 1 else f"{arity} arguments"

@@ -12,7 +12,9 @@ from tauledger.circuit import GROUND, Element, Instance, ReadingNote, fold
 from tauledger.devices.catalogue import choose, families_of
 from tauledger.devices.family import Refusal, never_refused
 from tauledger.errors import Diagnostic, InputError, NetlistError
+from tauledger.netlist.assignments import ALL
 from tauledger.netlist.behaviour import formula_of
+from tauledger.netlist.bins import bin_bases, fits
 from tauledger.netlist.conditions import counts, define_all
 from tauledger.netlist.controlled import behavioural, controlled, coupling, line
 from tauledger.netlist.diagnostics import MOST_DIAGNOSTICS, Site, nearest, visible
@@ -29,14 +31,17 @@ from tauledger.netlist.letters import (
     READ,
     SOURCES,
 )
-from tauledger.netlist.models import ModelCard, model_name, read_model
+from tauledger.netlist.models import ModelCard, base_name, model_name, read_model
 from tauledger.netlist.netlist import Definition, Netlist
 from tauledger.netlist.passive import impossible, passive
-from tauledger.netlist.scopes import Binding, Scope, define, work_out_all
+from tauledger.netlist.scopes import Binding, Scope, define, number_of, work_out_all
 from tauledger.netlist.sources import source
 
 # Letters whose elements ngspice does not multiply by the m of the instances around them.
 WITHOUT_M = frozenset("VEHBKTSWOUYP")
+# What `.options scale` multiplies.
+LENGTHS = ("l", "w", "pd", "ps", "sa", "sb", "sd")
+AREAS = ("ad", "as")
 READ_ONLY = "`tauledger netlist` shows what was read"
 
 
@@ -71,6 +76,36 @@ def flatten(netlist: Netlist, draft: Draft, around: Surroundings, faults: list[D
             faults.extend(error.diagnostics)
         if len(faults) > 10 * MOST_DIAGNOSTICS:
             return
+    for number in around.definition.nodesets:
+        site = Site(netlist.files, netlist.cards[number], around.context)
+        try:
+            if counts(netlist, number, around.scope, around.context):
+                _start_from(netlist, draft, around, netlist.items[number], site)
+        except NetlistError as error:
+            faults.extend(error.diagnostics)
+
+
+def _start_from(netlist: Netlist, draft: Draft, around: Surroundings, items: tuple[Item, ...], site: Site) -> None:
+    """Take the starting voltages of a `.nodeset` card; for a node that does not exist a note says so."""
+    for item in items[1:]:
+        assert isinstance(item, Setting)
+        value = number_of(site, item.value, around.scope)
+        if item.name.text == ALL:
+            draft.nodesets |= {node: value for node in range(1, len(draft.nodes)) if node not in draft.nodesets}
+            continue
+        node = _existing(netlist, draft, around, item.name)
+        if node is None:
+            says = f".nodeset: there is no node {visible(item.name.text)}, read past"
+            around.scope.notes.append(ReadingNote(site.where, says))
+        elif node:
+            draft.nodesets[node] = value
+
+
+def _existing(netlist: Netlist, draft: Draft, around: Surroundings, word: Word) -> int | None:
+    key = fold(word.text)
+    if key in around.ports and key not in netlist.globals:
+        return around.ports[key]
+    return draft.numbers.get(key if key in netlist.globals else fold(around.prefix) + key)
 
 
 def _element(
@@ -100,7 +135,11 @@ def _element(
         part = line(site, card, around.scope)
     else:
         seen = dict(reversed(list(_visible_models(netlist, around))))
-        part = _modelled(site, card, letter, frozenset(seen), around.scope)
+        bases = bin_bases(seen) if letter == "M" else frozenset()
+        part = _modelled(site, card, letter, frozenset(seen) | bases, around.scope)
+        part = _scaled(draft, part, letter)
+        if part.model is not None and fold(part.model.text) not in seen:
+            part = replace(part, model=_picked(netlist, draft, seen, part, part.model, letter, site))
     part = _multiplied(around, part, letter, name, site)
     if letter in PASSIVES and part.model is None and [key for key, _ in part.parameters] == ["value"]:
         _plain(netlist, draft, around, part, letter, name, number)
@@ -152,6 +191,35 @@ def _modelled(site: Site, card: Fields, letter: str, models: frozenset[str], sco
     known = frozenset().union(*(family.instance_parameters for family in families_of(letter)))
     part = device(site, card, MODELLED[letter], models, known, scope)
     return part if control is None else replace(part, references=(control,))
+
+
+def _scaled(draft: Draft, part: ElementCard, letter: str) -> ElementCard:
+    """Apply `.options scale` where ngspice does: to lengths and areas of MOS transistors and drawn capacitors."""
+    if draft.scale == 1.0 or letter not in "MC":
+        return part
+    by = {**dict.fromkeys(LENGTHS, draft.scale), **dict.fromkeys(AREAS, draft.scale**2)}
+    return replace(part, parameters=tuple((name, value * by.get(name, 1.0)) for name, value in part.parameters))
+
+
+def _picked(
+    netlist: Netlist,
+    draft: Draft,
+    seen: dict[str, tuple[Surroundings, int]],
+    part: ElementCard,
+    word: Word,
+    letter: str,
+    site: Site,
+) -> Word:
+    """Pick the bin of a model (name.1, name.2, ..) by length and width."""
+    key = fold(word.text)
+    numbered = sorted((number, name) for name, (_, number) in seen.items() if name.rpartition(".")[0] == key)
+    bins = [_model(netlist, draft, seen[name], Word(name, word.at), letter).model for _, name in numbered]
+    for model in bins:
+        if fits(model, dict(part.parameters)):
+            own = fold(model.name).rpartition(":")[2]
+            return Word(own, word.at)
+    sizes = " and ".join(f"{name}={dict(part.parameters)[name]:g}" for name in "lw" if name in dict(part.parameters))
+    raise site.fault(word, f"no bin of model {word.text} takes {sizes or 'a transistor without l and w'}")
 
 
 def _multiplied(around: Surroundings, part: ElementCard, letter: str, name: str, site: Site) -> ElementCard:
@@ -302,8 +370,18 @@ def _model(netlist: Netlist, draft: Draft, found: tuple[Surroundings, int], word
     assert isinstance(name, Word)
     flat = f"{home.prefix.removesuffix('.')}:{name.text}" if home.prefix else name.text
     words = PASSIVES[letter] if letter in PASSIVES else MODELLED[letter].words
+    base = _base(netlist, draft, home, number, letter, site)
     card = read_model(
-        site, netlist.items[number], types, words, home.scope, letter=letter, name=flat, card=number, path=home.path
+        site,
+        netlist.items[number],
+        types,
+        words,
+        home.scope,
+        letter=letter,
+        name=flat,
+        card=number,
+        path=home.path,
+        base=base,
     )
     values = dict(card.model.parameters)
     settable = frozenset().union(*(family.model_parameters for family in families_of(letter))) | values.keys()
@@ -322,6 +400,21 @@ def _model(netlist: Netlist, draft: Draft, found: tuple[Surroundings, int], word
     home.models[key] = card
     draft.models[fold(flat)] = card.model
     return card
+
+
+def _base(netlist: Netlist, draft: Draft, home: Surroundings, number: int, letter: str, site: Site) -> ModelCard | None:
+    """Read the model that another one is a kind of; it must be seen from there and be another one."""
+    word = base_name(netlist.items[number])
+    if word is None:
+        return None
+    seen = dict(reversed(list(_visible_models(netlist, home))))
+    found = seen.get(fold(word.text))
+    if found is None or found[1] == number or base_name(netlist.items[found[1]]) is not None:
+        problem = "is a kind of another one itself" if found else "does not exist"
+        raise site.fault(word, f"model {word.text} {problem}", nearest(word.text, seen))
+    says = f"a model made from {word.text} (AKO): ngspice reads that only in a compatibility mode"
+    home.scope.notes.append(ReadingNote(site.where, says))
+    return _model(netlist, draft, found, word, letter)
 
 
 def _instance(

@@ -35,6 +35,14 @@ def model_name(items: tuple[Item, ...]) -> str:
     return fold(name.text)
 
 
+def base_name(items: tuple[Item, ...]) -> Word | None:
+    """Give the model that a card is "a kind of" (AKO:name), or None."""
+    kind = items[2] if len(items) > 2 else None
+    if not isinstance(kind, Word) or fold(kind.text[:4]) != "ako:":
+        return None
+    return Word(kind.text[4:], kind.at + 4)
+
+
 def read_model(
     site: Site,
     items: tuple[Item, ...],
@@ -46,6 +54,7 @@ def read_model(
     name: str,
     card: int,
     path: int,
+    base: ModelCard | None = None,
 ) -> ModelCard:
     """Read a model for an element of `letter`, which takes these types; `name` is its flat name.
 
@@ -53,6 +62,12 @@ def read_model(
     there is no family every parameter is kept. Raises NetlistError with all that is wrong on the card.
     """
     kind = items[2] if len(items) > 2 else None
+    if base is not None:
+        # "a kind of": the type may be left out, and all that is not said here is as in the base.
+        second = items[3] if len(items) > 3 else None
+        typed = isinstance(second, Word) and fold(second.text) in types
+        kind = second if typed else Word(base.model.type, items[2].at)
+        items = (*items[:3], *items[4 if typed else 3 :])
     if not isinstance(kind, Word):
         at = len(site.card.text) if kind is None else kind
         raise site.fault(at, "the type of the model is missing", f"one of: {', '.join(types)}")
@@ -75,6 +90,8 @@ def read_model(
             faults.extend(error.diagnostics)
     if faults:
         raise NetlistError(*faults)
+    if base is not None:
+        values = {**dict(base.model.parameters), "level": float(base.model.level), **values}
     level = values.pop("level", 1.0)
     if level != int(level):
         raise site.fault(places["level"], f"a level is a whole number, not {level:g}")

@@ -46,7 +46,7 @@ class Card(Struct, frozen=True):
 class Definition(Struct, frozen=True):
     """A subcircuit, or the netlist itself (`card` is TOP, name and ports empty); cards are numbers in `Netlist.cards`.
 
-    defaults: the parameters on the `.subckt` card. elements, parameters, models: card numbers in file order.
+    defaults: the parameters on the `.subckt` card. elements, parameters, models, nodesets: card numbers in file order.
     """
 
     name: str
@@ -57,6 +57,7 @@ class Definition(Struct, frozen=True):
     parameters: tuple[int, ...]
     models: tuple[int, ...]
     definitions: tuple[Definition, ...]
+    nodesets: tuple[int, ...] = ()
 
 
 class Netlist(Struct, frozen=True):
@@ -66,7 +67,7 @@ class Netlist(Struct, frozen=True):
     globals: nodes named by `.global`, folded. options, temperatures: card numbers. requests: texts of analyses and
     outputs, which are hints only. past: what was read past, by word and count. sha256: over the bytes of all files in
     the order in which they were read. blocks: the cards of `.if`, `.elseif`, `.else` of each block; within: for a card
-    in such blocks their numbers and those of the branches, outermost first. nodesets: card numbers of `.nodeset`.
+    in such blocks their numbers and those of the branches, outermost first.
     """
 
     path: str
@@ -84,7 +85,6 @@ class Netlist(Struct, frozen=True):
     notes: tuple[ReadingNote, ...] = ()
     blocks: tuple[tuple[int, ...], ...] = ()
     within: dict[int, tuple[tuple[int, int], ...]] = field(default_factory=dict)
-    nodesets: tuple[int, ...] = ()
 
 
 def position(files: tuple[SourceFile, ...], card: Card, offset: int) -> Place:

@@ -8,13 +8,17 @@ from tauledger.netlist.items import Group, Item, Setting, Value, Word
 from tauledger.netlist.numbers import read_number
 from tauledger.netlist.scopes import Scope, number_of
 
-EFFECTIVE = frozenset({"temp", "tnom", "gmin"})
+EFFECTIVE = frozenset({"temp", "tnom", "gmin", "scale"})
 
 REFUSED = {
-    "scale": "it scales the sizes of devices",
     "rshunt": "it puts a resistor from every node to ground",
     "cshunt": "it puts a capacitor from every node to ground",
     "rseries": "it puts a resistor in series with every inductor",
+    "defl": "it gives transistors their length",
+    "defw": "it gives transistors their width",
+    "defad": "it gives transistors the area of their drain",
+    "defas": "it gives transistors the area of their source",
+    "badmos3": "it takes other equations",
 }
 
 

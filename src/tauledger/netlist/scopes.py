@@ -81,6 +81,16 @@ def find_function(scope: Scope, name: str) -> tuple[Site, Function] | None:
     return None
 
 
+def known_functions(scope: Scope) -> list[str]:
+    """List the functions of the user's own that can be seen from a scope, as written."""
+    here: Scope | None = scope
+    found: list[str] = []
+    while here is not None:
+        found += [function.name.text for _, function in here.functions.values()]
+        here = here.outer
+    return found
+
+
 def known_names(scope: Scope) -> Iterator[str]:
     """Run through all names that can be seen from a scope, as written."""
     here: Scope | None = scope
@@ -261,7 +271,7 @@ def _formula(
 
     if _MIL.search(formula.text):
         remark("mil inside a formula is m (1e-3), as ngspice reads it; outside it is 25.4e-6")
-    return evaluate(formula.tree, Surrounding(parameter, call, fault, remark))
+    return evaluate(formula.tree, Surrounding(parameter, call, lambda: known_functions(scope), fault, remark))
 
 
 def check_call(scope: Scope, tree: Call, function: Function, fault: Callable[[str, str], NetlistError]) -> None:

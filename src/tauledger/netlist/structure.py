@@ -10,7 +10,7 @@ from msgspec import Struct, field
 
 from tauledger.circuit import ReadingNote, fold
 from tauledger.errors import Diagnostic, NetlistError
-from tauledger.netlist.assignments import parse_assignments, parse_functions
+from tauledger.netlist.assignments import parse_assignments, parse_functions, parse_nodesets
 from tauledger.netlist.cards import parse_card, parse_element
 from tauledger.netlist.diagnostics import Site, gather, nearest, visible
 from tauledger.netlist.expressions import parse_formula
@@ -44,6 +44,7 @@ class _Open(Struct):
     parameters: list[int] = field(default_factory=list)
     models: list[int] = field(default_factory=list)
     definitions: list[Definition] = field(default_factory=list)
+    nodesets: list[int] = field(default_factory=list)
     branches: list[tuple[int, int]] = field(default_factory=list)
 
     def closed(self) -> Definition:
@@ -56,6 +57,7 @@ class _Open(Struct):
             tuple(self.parameters),
             tuple(self.models),
             tuple(self.definitions),
+            tuple(self.nodesets),
         )
 
 
@@ -73,7 +75,6 @@ class _Sorting(Struct):
     ended: str = ""
     blocks: list[list[int]] = field(default_factory=list)
     within: dict[int, tuple[tuple[int, int], ...]] = field(default_factory=dict)
-    nodesets: list[int] = field(default_factory=list)
 
 
 def structure(
@@ -126,7 +127,6 @@ def structure(
         notes=tuple(sorting.notes),
         blocks=tuple(map(tuple, sorting.blocks)),
         within=sorting.within,
-        nodesets=tuple(sorting.nodesets),
     )
 
 
@@ -297,13 +297,9 @@ def _never_ended(site: Site) -> NetlistError:
 
 
 def _nodeset(sorting: _Sorting, number: int, site: Site) -> tuple[Item, ...]:
-    items = parse_card(site)
-    sorting.nodesets.append(number)
+    items = parse_nodesets(site)
+    sorting.open[-1].nodesets.append(number)
     return items
-
-
-def _endl(_sorting: _Sorting, _number: int, site: Site) -> tuple[Item, ...]:
-    raise site.fault(0, "no section of a library is open here", "delete this line", wide=5)
 
 
 def _global(sorting: _Sorting, _number: int, site: Site) -> tuple[Item, ...]:
@@ -353,7 +349,6 @@ _DOT_CARDS: dict[str, Callable[[_Sorting, int, Site], tuple[Item, ...]]] = {
     ".else": _branch,
     ".endif": _endif,
     ".nodeset": _nodeset,
-    ".endl": _endl,
     ".global": _global,
     ".temp": _temp,
     ".end": _end,

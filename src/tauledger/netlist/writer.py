@@ -31,6 +31,8 @@ def flat_netlist(circuit: Circuit) -> str:
         words = (elements[fold(element.name)], *(nodes[node] for node in element.nodes[: _own_nodes(element)]))
         lines.append(" ".join((*words, *_rest(element, nodes, elements, models))))
     lines += [_model(models[model.name], model) for model in circuit.models]
+    if circuit.nodesets:
+        lines.append(" ".join((".nodeset", *(f"v({nodes[node]})={value!r}" for node, value in circuit.nodesets))))
     settings = [("temp", circuit.temperature_c), ("tnom", circuit.tnom_c), *circuit.options]
     lines.append(" ".join((".options", *(f"{name}={float(value)!r}" for name, value in settings))))
     lines.append(".end")
