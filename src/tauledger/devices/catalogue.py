@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from tauledger.circuit import Circuit, Element, Model
+from tauledger.devices.behavioural import BEHAVIOURAL
 from tauledger.devices.controlled import CURRENT_GAIN, TRANSCONDUCTANCE, TRANSRESISTANCE, VOLTAGE_GAIN
 from tauledger.devices.coupling import COUPLING
 from tauledger.devices.family import Device, Family, Linearised, Refusal
@@ -30,6 +31,7 @@ FAMILIES: tuple[Family, ...] = (
     CURRENT_SWITCH,
     GUMMEL_POON,
     *FITTED,
+    *BEHAVIOURAL,
 )
 
 
