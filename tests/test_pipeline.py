@@ -13,14 +13,12 @@ from tauledger.engine.client import Engine
 from tauledger.engine.grid import decades
 from tauledger.netlist import elaborate, read
 from tauledger.network.agreement import agreement
-from tauledger.network.bands import classify
 from tauledger.network.constants import group_delay, open_constants
-from tauledger.network.midband import find_midband
 from tauledger.network.recompute import without
 from tauledger.network.shares import find_shares
 from tauledger.network.solve import response
 from tauledger.numbers import Numbers, recompute, solve
-from tauledger.pipeline import review
+from tauledger.pipeline import review, review_network
 from tauledger.record import Review
 
 FIXTURES = Path(__file__).parent.parent / "fixtures"
@@ -129,21 +127,30 @@ def test_delays_of_all_parts_add_to_the_phase_slope_of_ngspice(board: str, engin
     assert sum(delays.values()) == pytest.approx(slope, rel=1e-3, abs=1e-3 * scale)
 
 
-@pytest.mark.parametrize("board", ["echo_preamp.cir", "echo_cascode.cir", "gain_pair.cir"])
-def test_decoupling_is_in_no_sum_of_the_path(board: str, engine: Engine) -> None:
+@pytest.mark.parametrize(
+    ("board", "decoupling"),
+    [
+        ("echo_preamp.cir", {"C6", "R7", "C7"}),  # electrolytic with its own resistance, and ceramic
+        ("echo_cascode.cir", {"C9"}),
+        ("gain_pair.cir", {"C9"}),
+    ],
+)
+def test_decoupling_is_in_no_sum_of_the_path(board: str, decoupling: set[str], engine: Engine) -> None:
     numbers = numbers_of(FIXTURES / board, engine)
-    found = review_of(board, engine)
-    before = open_constants(numbers.bands)
-    off_path = frozenset(row.name for row in before.parts if not row.in_path and row.kind == "capacitance")
-    assert {"echo_preamp.cir": "C7", "echo_cascode.cir": "C9", "gain_pair.cir": "C9"}[board] in (
-        off_path | {part.name for part in found.parts if part.klass == "short"}
-    )
-    network = without(numbers.network, off_path)
-    after = open_constants(classify(network, find_midband(network)))
-    assert after.weighted_sum_s == pytest.approx(before.weighted_sum_s, rel=0.01)
-    path_before = sum(row.time_constant_s for row in before.parts if row.in_path)
-    path_after = sum(row.time_constant_s for row in after.parts if row.in_path)
-    assert path_after == pytest.approx(path_before, rel=0.01)
+    with_it = review_network(numbers.network, devices=numbers.devices).budget.upper
+    without_it = review_network(without(numbers.network, frozenset(decoupling)), devices=numbers.devices).budget.upper
+    assert with_it is not None
+    assert without_it is not None
+    assert without_it.path_sum_s == pytest.approx(with_it.path_sum_s, rel=0.01, abs=0)
+    assert without_it.weighted_sum_s == pytest.approx(with_it.weighted_sum_s, rel=0.01, abs=0)
+
+
+def test_a_ceramic_beside_an_electrolytic_counts_in_the_sum_over_all_parts_alone(engine: Engine) -> None:
+    numbers = numbers_of(FIXTURES / "echo_preamp.cir", engine)
+    row = open_constants(numbers.bands).part("C7")
+    assert not row.in_path
+    assert row.time_constant_s > 20e-9
+    assert abs(row.delay_s) < 1e-9
 
 
 def test_narrow_band_gives_shares_and_withholds_the_hand_tables(tmp_path: Path, engine: Engine) -> None:

@@ -91,7 +91,8 @@ def weight_identities(bands: Bands, constants: OpenConstants) -> tuple[Identity,
     gain = complex(response(upper, np.zeros(1))[0])
     found = []
     for row in dict.fromkeys((*rows[:1], *rows[-1:])):
-        short = voltage_source(f"short of {row.name}", *row.nodes)
+        a, b = row.nodes
+        short = voltage_source(f"short of {row.name}", a, b)
         shorted = complex(response(assemble((*upper.parts, short), upper.port, upper.amplitudes), np.zeros(1))[0])
         weight = 1.0 - (shorted / gain).real
         found.append(Identity(f"weight of {row.name} = gain lost when shorted", row.weight, weight, POLES, 1.0))
