@@ -18,18 +18,9 @@ from tauledger.record import Curves, DeviceFacts, DriveFacts, Figure, LoadFacts,
 HAZARDOUS_VOLT = 60.0
 LINES_FOR_SHARE = 0.01
 SOURCES = ("voltage source", "current source")
-UNITS = {
-    "i_c": "A",
-    "i_d": "A",
-    "v_ce": "V",
-    "v_ds": "V",
-    "gm": "S",
-    "r_pi": "Ω",
-    "r_o": "Ω",
-    "c_pi": "F",
-    "c_mu": "F",
-    "f_t": "Hz",
-}
+# By the first letter of a figure's symbol: i_c, v_ce, gm, r_o, c_pi, f_t.
+UNITS = {"i": "A", "v": "V", "g": "S", "r": "Ω", "c": "F", "f": "Hz"}
+EFFICIENCY = "gm/I"
 
 
 def drive_facts(numbers: Numbers) -> tuple[DriveFacts, ...]:
@@ -69,16 +60,24 @@ def unit_of(numbers: Numbers) -> str:
 
 
 def device_facts(numbers: Numbers) -> tuple[DeviceFacts, ...]:
-    """Give every device at its operating point."""
+    """Give every device that has an operating point to speak of: transistors and diodes, no controlled sources."""
     return tuple(
         DeviceFacts(
             device.name,
             device.kind,
             device.region,
-            tuple(Figure(symbol, value, UNITS[symbol]) for symbol, value in device.figures if math.isfinite(value)),
+            tuple(
+                Figure(symbol, value, figure_unit(symbol)) for symbol, value in device.figures if math.isfinite(value)
+            ),
         )
         for device in numbers.devices
+        if device.region
     )
+
+
+def figure_unit(symbol: str) -> str:
+    """Give the unit of a figure of the operating point by its symbol."""
+    return "1/V" if symbol == EFFICIENCY else UNITS[symbol[0]]
 
 
 def curves(numbers: Numbers, explanation: Explanation) -> Curves | None:
