@@ -9,7 +9,7 @@ from typing import Literal
 
 from msgspec import Struct
 
-from tauledger.record import NodeRow, Review
+from tauledger.record import Review
 from tauledger.report.sentences import (
     Answer,
     KeyFigure,
@@ -20,11 +20,12 @@ from tauledger.report.sentences import (
     headline,
     key_figures,
     note_text,
-    plain,
 )
 from tauledger.report.tables import lower, roots, setting, upper, way
 from tauledger.report.tables.grid import Grid
-from tauledger.report.wording import EDGE, fraction, move, number, part_titles, withheld
+from tauledger.report.tables.working import Lines, working
+from tauledger.report.wording import EDGE, fraction, move, withheld
+from tauledger.report.working import node_title
 
 FigureName = Literal["time", "shares", "way", "bode", "stages", "plane"]
 
@@ -56,11 +57,10 @@ class Items(Struct, frozen=True):
 
 
 class Folded(Struct, frozen=True):
-    """Something a reader opens: its title, and lines of working or a table."""
+    """Something a reader opens: its title, and what is in it."""
 
     title: str
-    lines: tuple[str, ...] = ()
-    grid: Grid | None = None
+    blocks: tuple[Prose | Lines | Grid, ...]
 
 
 Block = Prose | Picture | Items | Folded | Grid
@@ -138,33 +138,20 @@ def _budget(review: Review) -> Section:
     nodes = upper.counting_nodes(review)
     if nodes:
         blocks.append(upper.budget(review))
-        blocks.extend(_working(node, review) for node in nodes if node.working is not None)
-    if len(review.nodes) > len(nodes):
-        rest = upper.smaller_nodes(review)
-        blocks.append(Folded(rest.caption, grid=rest))
+        blocks.extend(
+            Folded(f"Working: {node_title(node)}, share of f_H {fraction(node.share.f_high)}", working(node, review))
+            for node in nodes
+            if node.working is not None
+        )
+    rest = upper.smaller_nodes(review)
+    if rest.rows:
+        blocks.append(Folded(rest.caption, (rest,)))
     return Section(
         "budget",
         "The time-constant budget of the upper edge",
         tuple(blocks),
         ("Signal node", "R", "Time constant", "Miller factor", "1 pF more"),
     )
-
-
-def _working(node: NodeRow, review: Review) -> Folded:
-    """Write the working of one node: its resistances first, then capacitance by capacitance."""
-    working = node.working
-    assert working is not None
-    titles = part_titles(review.parts)
-    about_gain = {term.text for term in working.capacitances}
-    lines = [line for line in working.text.split("; ") if line not in about_gain]
-    if working.loop_gain is not None:
-        lines.append(f"feedback loop with loop gain T = {working.loop_gain:.4g}")
-    lines.append(f"exact: {number(node.resistance_exact_ohm, 'Ω')}")
-    for term in sorted(working.capacitances, key=lambda term: -abs(upper.term_seconds(term, node))):
-        because = f" because {term.text}" if term.text else ""
-        lines.append(f"{titles.get(term.part, term.part)}: {upper.term_text(term)}{because}")
-    told = tuple(plain(line, review) for line in lines)
-    return Folded(f"Working: {node.title}, share of f_H {fraction(node.share.f_high)}", told)
 
 
 def _time(review: Review) -> Section:
@@ -194,7 +181,7 @@ def _way(review: Review) -> Section:
         blocks.append(way.way_table(review, "f_high"))
         methods = way.methods_table(review, "f_high")
         if methods.rows:
-            blocks.append(Folded(methods.caption, grid=methods))
+            blocks.append(Folded(methods.caption, (methods,)))
     title = "From paper to simulation"
     return Section("way", title, tuple(blocks), ("Lowest node alone", "Sum of time constants", "σ"))
 
@@ -228,7 +215,7 @@ def _lower(review: Review) -> Section:
             blocks.append(way.way_table(review, "f_low"))
         methods = way.methods_table(review, "f_low")
         if methods.rows:
-            blocks.append(Folded(methods.caption, grid=methods))
+            blocks.append(Folded(methods.caption, (methods,)))
     if lower.aside(review):
         blocks.append(Prose(lower.aside(review)))
     return Section("lower", "The lower edge", tuple(blocks), ("Edge alone", "Bypass zero"))

@@ -16,7 +16,7 @@ def lower_edge(review: Review, *, verbose: bool = False) -> Section:
         part for part in review.parts if part.klass in ("short", "gain") and part.kind in ("capacitance", "inductance")
     ]
     with_edge = [part for part in short if part.in_path and part.edge_hz is not None]
-    rows = _in_parallel(sorted(with_edge, key=lambda part: (-(part.edge_hz or 0.0), -part.value)))
+    rows = in_parallel(sorted(with_edge, key=lambda part: (-(part.edge_hz or 0.0), -part.value)))
     blocks: list[Block] = []
     if rows and review.f_low is not None:
         shown = rows if verbose else rows[:_ROWS]
@@ -45,7 +45,7 @@ def lower_edge(review: Review, *, verbose: bool = False) -> Section:
     return Section(tuple(blocks), major=True)
 
 
-def _in_parallel(parts: list[PartRow]) -> list[list[PartRow]]:
+def in_parallel(parts: list[PartRow]) -> list[list[PartRow]]:
     """Put capacitors with the same edge and zero between the same nodes together: they are one; order kept."""
     groups: dict[tuple[frozenset[str], float | None, float | None], list[PartRow]] = {}
     for part in parts:

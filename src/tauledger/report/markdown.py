@@ -8,6 +8,7 @@ from collections.abc import Iterator
 from tauledger.record import Review
 from tauledger.report.document import Folded, Items, Prose, Section, document
 from tauledger.report.tables.grid import Grid
+from tauledger.report.tables.working import Lines
 from tauledger.report.terms import TERMS
 
 _BREAK = re.compile(r"\s*[\r\n]+\s*")
@@ -67,17 +68,19 @@ def _block(block: object) -> Iterator[str]:
     elif isinstance(block, Items):
         yield from (f"- **{escape(item.lead)}** {escape(item.text)}" for item in block.items)
         yield ""
+    elif isinstance(block, Lines):
+        yield from (f"- {escape(line)}" for line in block.lines)
+        yield ""
     elif isinstance(block, Folded):
         yield from (f"<details><summary>{escape(block.title)}</summary>", "")
-        if block.grid is not None:
-            yield from _table(block.grid)
-        else:
-            yield from (f"- {escape(line)}" for line in block.lines)
-            yield ""
+        for inner in block.blocks:
+            yield from _block(inner)
         yield from ("</details>", "")
 
 
 def _table(grid: Grid) -> Iterator[str]:
+    if grid.columns[0].head:
+        yield from (f"*{escape(grid.caption)}*", "")
     yield "| " + " | ".join(escape(column.head) for column in grid.columns) + " |"
     yield "|" + "|".join("---:" if column.align == "r" else "---" for column in grid.columns) + "|"
     for row in grid.rows:

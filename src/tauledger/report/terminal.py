@@ -9,7 +9,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from tauledger.record import NodeRow, Review
-from tauledger.report import lower, poles, reasons, steps, summary, upper
+from tauledger.report import lower, paper, poles, reasons, steps, summary, upper
 from tauledger.report.layout import CAUTION, HEADING, STRONG, WARNING, Line, Section, lay_out
 from tauledger.report.working import workings
 
@@ -37,6 +37,7 @@ def render(
         summary.headline(review),
         summary.band(review),
         summary.operating_points(review, verbose=verbose),
+        paper.own_page(review),
         reasons.causes(review, verbose=verbose),
         upper.upper_budget(review, verbose=verbose),
         steps.steps(review, "f_high"),

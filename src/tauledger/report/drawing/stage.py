@@ -95,7 +95,7 @@ def _resistance(node: NodeRow) -> str:
 def _svg(pieces: list[str], x: float, *, key: str, title: str) -> str:
     width, height = x + 8.0, BOTTOM + 26.0
     return (
-        f'<svg class="circuit" viewBox="0 0 {width:g} {height:g}" width="{width:g}" height="{height:g}" role="img" '
+        f'<svg class="circuit" viewBox="0 0 {width:g} {height:g}" style="--width: {width:g}px" role="img" '
         f'aria-labelledby="{key}-title"><title id="{key}-title">{escape(title)}</title>{"".join(pieces)}</svg>\n'
     )
 

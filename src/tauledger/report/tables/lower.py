@@ -3,8 +3,9 @@
 from __future__ import annotations
 
 from tauledger.record import PartRow, Review
+from tauledger.report.lower import in_parallel
 from tauledger.report.tables.grid import Grid, GridRow, columns
-from tauledger.report.wording import NO_NUMBER, SOLVED, amount, fraction, move, number, part_title
+from tauledger.report.wording import NO_NUMBER, SOLVED, amount, fraction, move, nominal, number, part_title, part_unit
 
 
 def lower_parts(review: Review) -> tuple[PartRow, ...]:
@@ -19,19 +20,23 @@ def lower_edge(review: Review) -> Grid:
     """Give R by hand and exact, edge, zero, share of f_L and f_L recomputed with 10 % less."""
     exact = review.f_low.exact_hz if review.f_low else None
     rows = []
-    for part in lower_parts(review):
+    groups = in_parallel(list(lower_parts(review)))
+    for group in groups:
+        part = group[0]
         less = part.ten_percent_less.f_low_hz
+        value = amount(part) if len(group) == 1 else nominal(sum(one.value for one in group), part_unit(part.kind))
+        shares = [one.share.f_low for one in group if one.share.f_low is not None]
         ends = " to ".join("ground" if node == "0" else node for node in part.nodes)
         rows.append(
             GridRow(
                 (
-                    f"{part_title(part.name, part.owner)}, {ends}",
-                    amount(part),
+                    f"{' ‖ '.join(part_title(one.name, one.owner) for one in group)}, {ends}",
+                    value,
                     SOLVED if part.resistance_hand_ohm is None else number(part.resistance_hand_ohm, "Ω"),
                     number(part.resistance_exact_ohm, "Ω"),
                     number(part.edge_hz, "Hz"),
                     "at DC" if part.zero_hz == 0.0 else number(part.zero_hz, "Hz"),
-                    fraction(part.share.f_low),
+                    fraction(sum(shares) if shares else None),
                     number(less, "Hz"),
                     move(less / exact - 1.0) if less is not None and exact else NO_NUMBER,
                 ),
@@ -50,8 +55,9 @@ def lower_edge(review: Review) -> Grid:
         "change",
     )
     solved = any(part.resistance_hand_ohm is None for part in lower_parts(review))
-    note = f"{SOLVED} no hand rule fits: the exact resistance is used." if solved else ""
-    return Grid("Coupling and bypass capacitors at the lower edge", heads, tuple(rows), note)
+    notes = [f"{SOLVED} no hand rule fits: the exact resistance is used."] if solved else []
+    notes += [f"10 % less of {group[0].name} alone." for group in groups if len(group) > 1]
+    return Grid("Coupling and bypass capacitors at the lower edge", heads, tuple(rows), " ".join(notes))
 
 
 def aside(review: Review) -> str:

@@ -17,6 +17,7 @@ from tauledger.report.wording import (
     part_titles,
     share,
 )
+from tauledger.report.working import node_title
 
 PICOFARAD = 1e-12
 # Rows that take less of the sum stand apart, so that a reader of a large board sees what matters.
@@ -30,13 +31,18 @@ def whole_s(review: Review) -> float:
     upper = review.budget.upper
     if upper is not None and upper.path_sum_s:
         return upper.path_sum_s
-    return math.fsum(node.time_constant_s or 0.0 for node in review.nodes if node.in_path)
+    return math.fsum(node.time_constant_s or 0.0 for node in counted(review))
+
+
+def counted(review: Review) -> list[NodeRow]:
+    """Give the nodes that count in the sums: those in the path, of a balanced circuit those of one half."""
+    return [node for node in review.nodes if node.in_path and not node.second]
 
 
 def counting_nodes(review: Review) -> tuple[NodeRow, ...]:
     """Give the nodes that take at least half a per cent of the sum, largest first."""
     least = MATTERS * abs(whole_s(review))
-    rows = [node for node in review.nodes if node.in_path and abs(node.time_constant_s or 0.0) >= least]
+    rows = [node for node in counted(review) if abs(node.time_constant_s or 0.0) >= least]
     return tuple(sorted(rows, key=lambda node: -abs(node.time_constant_s or 0.0)))
 
 
@@ -45,10 +51,10 @@ def budget(review: Review) -> Grid:
     nodes = counting_nodes(review)
     rows = _node_rows(nodes, review)
     sums = review.budget.upper
-    others = len([node for node in review.nodes if node.in_path]) - len(nodes)
+    others = len(counted(review)) - len(nodes)
     if sums is not None and sums.path_sum_s is not None:
         name = "Sum, nodes not shown included" if others else "Sum"
-        cells = (name, "", "", "", number(sums.path_sum_s, "s"), _exact_sum(review, sums.path_sum_s), "100 %", "")
+        cells = (name, "", "", "", number(sums.path_sum_s, "s"), _exact_sum(review), "100 %", "")
         rows.append(GridRow(cells, "sum"))
     solved = any(node.working is not None and node.working.source == "solved" for node in nodes)
     return Grid(
@@ -62,7 +68,7 @@ def budget(review: Review) -> Grid:
 def smaller_nodes(review: Review) -> Grid:
     """Give the nodes that hardly count and those that no signal passes, in the same columns."""
     shown = {node.name for node in counting_nodes(review)}
-    rest = [node for node in review.nodes if node.name not in shown]
+    rest = [node for node in review.nodes if node.name not in shown and not node.second]
     rest.sort(key=lambda node: (not node.in_path, -abs(node.time_constant_s or 0.0)))
     return Grid(
         "Nodes that hardly count, and nodes off the signal path", BUDGET_COLUMNS, tuple(_node_rows(rest, review))
@@ -142,7 +148,7 @@ def _node_rows(nodes: Iterable[NodeRow], review: Review) -> list[GridRow]:
         rows.append(
             GridRow(
                 (
-                    node.title if node.in_path else f"{node.title}, off the path",
+                    node_title(node),
                     number(node.resistance_hand_ohm, "Ω") + solved,
                     number(node.resistance_exact_ohm, "Ω"),
                     number(node.capacitance_f, "F"),
@@ -182,13 +188,8 @@ def _term_row(term: CapacitanceTerm, node: NodeRow, titles: Mapping[str, str], w
     return GridRow(cells, "part", term.part)
 
 
-def _exact_sum(review: Review, path_sum_s: float) -> str:
-    """Give the exact sum where the hand sum is the plain one; a pair's halves are counted once, and it is left out."""
-    counted = [node for node in review.nodes if node.in_path]
-    by_hand = math.fsum(node.time_constant_s or 0.0 for node in counted)
-    if not math.isclose(by_hand, path_sum_s, rel_tol=1e-6):
-        return ""
-    return number(math.fsum(node.time_constant_exact_s or 0.0 for node in counted), "s")
+def _exact_sum(review: Review) -> str:
+    return number(math.fsum(node.time_constant_exact_s or 0.0 for node in counted(review)), "s")
 
 
 def _of(seconds: float | None, whole: float) -> str:
