@@ -11,6 +11,8 @@ import click
 
 from tauledger import __version__
 from tauledger.commands.methods import methods_command
+from tauledger.commands.netlist import netlist_command
+from tauledger.commands.paper import paper_command
 from tauledger.commands.review import review_command
 from tauledger.errors import ExitCode, NetlistError, NetworkError, TauledgerError
 
@@ -37,6 +39,8 @@ def command() -> None:
 
 command.add_command(review_command)
 command.add_command(methods_command)
+command.add_command(netlist_command)
+command.add_command(paper_command)
 
 
 def _outcome(arguments: list[str] | None) -> int:

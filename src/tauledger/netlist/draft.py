@@ -21,6 +21,7 @@ from tauledger.circuit import (
 )
 from tauledger.errors import Diagnostic, InputError
 from tauledger.netlist.diagnostics import nearest, visible
+from tauledger.netlist.scopes import Scope
 
 MOST_ELEMENTS = 250_000
 MOST_INSTANCES = 20_000
@@ -44,8 +45,8 @@ class Draft(Struct):
 
     numbers: node number by folded flat name. taken: where each flat element name was first used. changed: values of a
     Change by folded name that have not been used yet; used ones are taken out. refusals: what can be read but not
-    reviewed. nodesets: volt by node number. scale: of the sizes of MOS transistors (.options scale). contexts: per
-    instance the lines that say where it stands.
+    reviewed. nodesets: volt by node number. scale: of the sizes of MOS transistors (.options scale). scopes: of all
+    instances but the netlist itself. contexts: per instance the lines that say where it stands.
     """
 
     nodes: list[str] = field(default_factory=lambda: [GROUND])
@@ -61,6 +62,7 @@ class Draft(Struct):
     refusals: list[Diagnostic] = field(default_factory=list)
     nodesets: dict[int, float] = field(default_factory=dict)
     scale: float = 1.0
+    scopes: list[Scope] = field(default_factory=list)
     contexts: list[tuple[str, ...]] = field(default_factory=lambda: [()])
 
 

@@ -8,6 +8,8 @@ from __future__ import annotations
 import math
 from typing import Literal
 
+from msgspec import Struct
+
 from tauledger.circuit import ADDED, GROUND, NO_CHANGE, Change, Circuit, Port, fold
 from tauledger.errors import Diagnostic, InputError, NetlistError
 from tauledger.netlist.conditions import counts, define_all
@@ -28,6 +30,13 @@ ROOM_C = 27.0
 Purpose = Literal["review", "reading"]
 
 
+class Elaborated(Struct, frozen=True):
+    """A circuit, and by number of the instance the scope in which its cards were read."""
+
+    circuit: Circuit
+    scopes: tuple[Scope, ...]
+
+
 def elaborate(
     netlist: Netlist,
     change: Change = NO_CHANGE,
@@ -45,6 +54,18 @@ def elaborate(
     Raises NetlistError (up to 20 diagnostics) where cards have no usable meaning, InputError where drive, output or
     change name what is not there.
     """
+    return elaborated(netlist, change, drive=drive, output=output, purpose=purpose).circuit
+
+
+def elaborated(
+    netlist: Netlist,
+    change: Change = NO_CHANGE,
+    *,
+    drive: str | None = None,
+    output: str | None = None,
+    purpose: Purpose = "review",
+) -> Elaborated:
+    """Do as `elaborate` and keep the parameters of every instance."""
     draft = draft_for(change)
     scope = Scope()
     faults: list[Diagnostic] = []
@@ -81,7 +102,7 @@ def elaborate(
         forced += [Port(port.minus, port.plus) for port in forced]
         port = choose_output(output, hints(netlist).outputs, draft.nodes, currents, forced)
     _add_loads(draft, change, currents)
-    return finished(
+    circuit = finished(
         draft,
         title=netlist.title,
         elements=driven.elements,
@@ -93,6 +114,7 @@ def elaborate(
         notes=tuple(dict.fromkeys(netlist.notes + tuple(scope.notes))),
         nodesets=tuple(draft.nodesets.items()),
     )
+    return Elaborated(circuit, (scope, *draft.scopes))
 
 
 def instance_context(netlist: Netlist, circuit: Circuit, path: int) -> tuple[str, ...]:

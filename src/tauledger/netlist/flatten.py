@@ -442,6 +442,7 @@ def _instance(
     context = (f"in {visible(name)} ({site.where}), subcircuit {visible(definition.name)} ({where})", *around.context)
     draft.contexts.append(context)
     scope = _scope(netlist, around, definition, call, site, context)
+    draft.scopes.append(scope)
     inner = Surroundings(
         definition=definition,
         scope=scope,

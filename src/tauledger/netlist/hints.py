@@ -6,7 +6,8 @@ import re
 
 from msgspec import Struct
 
-from tauledger.netlist.netlist import Netlist
+from tauledger.netlist.diagnostics import visible
+from tauledger.netlist.netlist import Netlist, place
 from tauledger.netlist.numbers import read_number
 
 _REQUEST = re.compile(r"(?<![\w.])([vi])(?:db|m|p|r|i)?\s*\(\s*([^()\s,]+)\s*(?:,\s*([^()\s,]+)\s*)?\)", re.IGNORECASE)
@@ -89,6 +90,22 @@ def read_past(netlist: Netlist) -> str:
             many = plural.get(what, what if what.startswith(".") else f"{what}s")
             words.append(f"{count} {what if count == 1 else many}")
     return ", ".join(words)
+
+
+def read_past_places(netlist: Netlist) -> list[tuple[str, str]]:
+    """List what was read past in the order of the files: where ("board.cir:12"), and what with its text."""
+    order = {file.path: number for number, file in enumerate(netlist.files)}
+    found: list[tuple[tuple[int, int], str, str]] = []
+    for number, what in netlist.passed:
+        at = place(netlist, number)
+        text = netlist.cards[number].text
+        shown = text if what[0] == "." or what == "analysis" else f"{what} of {text}"
+        found.append(((order[at.file], at.line), f"{visible(at.file)}:{at.line}", visible(shown)))
+    for script in netlist.scripts:
+        path = netlist.files[script.file].path
+        what = f".control block of {len(script.lines)} line{'' if len(script.lines) == 1 else 's'}, never run"
+        found.append(((script.file, script.line), f"{visible(path)}:{script.line}", what))
+    return [(where, what) for _, where, what in sorted(found)]
 
 
 def _place_in_line(what: str) -> tuple[int, str]:

@@ -71,9 +71,9 @@ def width(item: Item) -> int:
     match item:
         case Word(text=text):
             return len(text)
-        case Formula(text=text) | Quoted(text=text):
+        case Quoted(text=text):
             return len(text) + 2
-        case Behaviour(text=text, at=at, inner=inner):
+        case Formula(text=text, at=at, inner=inner) | Behaviour(text=text, at=at, inner=inner):
             return len(text) + 2 * (inner - at)
         case Setting(name=name, value=value):
             return value.at + width(value) - name.at

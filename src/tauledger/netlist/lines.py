@@ -13,17 +13,17 @@ from msgspec import Struct
 
 from tauledger.errors import Diagnostic
 from tauledger.netlist.diagnostics import diagnostic, unsafe
-from tauledger.netlist.netlist import Card, Piece
+from tauledger.netlist.netlist import Card, Piece, Script
 
 _MARK = re.compile(r"""'[^']*'|"[^"]*"|;|//|\$""")
 _COMMENT_START = ("*", ";", "//", "$")
 
 
 class Assembled(Struct, frozen=True):
-    """A file in logical lines. scripts: the lines of each `.control` block, its fences left out."""
+    """A file in logical lines, and its `.control` blocks."""
 
     cards: tuple[Card, ...]
-    scripts: tuple[tuple[str, ...], ...]
+    scripts: tuple[Script, ...]
     faults: tuple[Diagnostic, ...]
 
 
@@ -33,7 +33,7 @@ def assemble(lines: Sequence[str], *, file: int, path: str, start: int = 0) -> A
     Faults: a continuation with nothing before it, a control character in a card, a block without `.endc`.
     """
     cards: list[Card] = []
-    scripts: list[tuple[str, ...]] = []
+    scripts: list[Script] = []
     faults: list[Diagnostic] = []
     texts: list[str] = []
     pieces: list[Piece] = []
@@ -53,7 +53,7 @@ def assemble(lines: Sequence[str], *, file: int, path: str, start: int = 0) -> A
         content = line.strip()
         if script is not None:
             if content[:5].lower() == ".endc":
-                scripts.append(tuple(script))
+                scripts.append(Script(file, opened, tuple(script)))
                 script = None
             else:
                 script.append(content)

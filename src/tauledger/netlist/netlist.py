@@ -43,6 +43,14 @@ class Card(Struct, frozen=True):
     pieces: tuple[Piece, ...]
 
 
+class Script(Struct, frozen=True):
+    """A `.control` block: number of its file, its line from 1, and its lines, the fences left out."""
+
+    file: int
+    line: int
+    lines: tuple[str, ...]
+
+
 class Definition(Struct, frozen=True):
     """A subcircuit, or the netlist itself (`card` is TOP, name and ports empty); cards are numbers in `Netlist.cards`.
 
@@ -67,7 +75,8 @@ class Netlist(Struct, frozen=True):
     globals: nodes named by `.global`, folded. options, temperatures: card numbers. requests: texts of analyses and
     outputs, which are hints only. past: what was read past, by word and count. sha256: over the bytes of all files in
     the order in which they were read. blocks: the cards of `.if`, `.elseif`, `.else` of each block; within: for a card
-    in such blocks their numbers and those of the branches, outermost first.
+    in such blocks their numbers and those of the branches, outermost first. passed: number of a card and what on it
+    was read past. scripts: the `.control` blocks.
     """
 
     path: str
@@ -84,6 +93,8 @@ class Netlist(Struct, frozen=True):
     sha256: str
     notes: tuple[ReadingNote, ...] = ()
     blocks: tuple[tuple[int, ...], ...] = ()
+    passed: tuple[tuple[int, str], ...] = ()
+    scripts: tuple[Script, ...] = ()
     within: dict[int, tuple[tuple[int, int], ...]] = field(default_factory=dict)
 
 

@@ -20,7 +20,7 @@ from tauledger.errors import Diagnostic, InputError, NetlistError
 from tauledger.netlist.diagnostics import Site, visible
 from tauledger.netlist.items import Word
 from tauledger.netlist.lines import assemble
-from tauledger.netlist.netlist import Card, Netlist, SourceFile
+from tauledger.netlist.netlist import Card, Netlist, Script, SourceFile
 from tauledger.netlist.sections import Call, library_call, no_such_section, take, words_behind
 from tauledger.netlist.structure import structure
 
@@ -37,7 +37,7 @@ class _Reading(Struct):
     allowed: tuple[Path, ...] = ()
     files: list[SourceFile] = field(default_factory=list)
     cards: list[Card] = field(default_factory=list)
-    scripts: list[tuple[str, ...]] = field(default_factory=list)
+    scripts: list[Script] = field(default_factory=list)
     faults: list[Diagnostic] = field(default_factory=list)
     notes: list[ReadingNote] = field(default_factory=list)
     digest: hashlib._Hash = field(default_factory=hashlib.sha256)

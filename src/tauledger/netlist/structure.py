@@ -16,7 +16,7 @@ from tauledger.netlist.diagnostics import Site, gather, nearest, visible
 from tauledger.netlist.expressions import parse_formula
 from tauledger.netlist.items import Item, Setting, Word, flattened
 from tauledger.netlist.letters import READ, TIME_FUNCTIONS
-from tauledger.netlist.netlist import TOP, Card, Definition, Netlist, SourceFile
+from tauledger.netlist.netlist import TOP, Card, Definition, Netlist, Script, SourceFile
 from tauledger.netlist.options import EFFECTIVE, option_settings
 
 ANALYSES = frozenset([".ac", ".dc", ".disto", ".noise", ".op", ".pss", ".pz", ".sens", ".sp", ".tf", ".tran"])
@@ -72,9 +72,15 @@ class _Sorting(Struct):
     requests: list[str] = field(default_factory=list)
     past: Counter[str] = field(default_factory=Counter)
     notes: list[ReadingNote] = field(default_factory=list)
+    passed: list[tuple[int, str]] = field(default_factory=list)
     ended: str = ""
     blocks: list[list[int]] = field(default_factory=list)
     within: dict[int, tuple[tuple[int, int], ...]] = field(default_factory=dict)
+
+    def pass_over(self, card: int, what: str, name: str = "") -> None:
+        """Count what is read past, and remember the card."""
+        self.past[what] += 1
+        self.passed.append((card, f"{what} {name}" if name else what))
 
 
 def structure(
@@ -83,7 +89,7 @@ def structure(
     title: str,
     files: tuple[SourceFile, ...],
     cards: tuple[Card, ...],
-    scripts: tuple[tuple[str, ...], ...],
+    scripts: tuple[Script, ...],
     faults: tuple[Diagnostic, ...],
 ) -> Netlist:
     """Sort the cards of all files into definitions, hints and what is read past; parse those that are read.
@@ -109,8 +115,8 @@ def structure(
     if found:
         raise gather(found, files)
     for script in scripts:
-        lines = "line" if len(script) == 1 else "lines"
-        sorting.past[f".control block of {len(script)} {lines}"] += 1
+        lines = "line" if len(script.lines) == 1 else "lines"
+        sorting.past[f".control block of {len(script.lines)} {lines}"] += 1
     return Netlist(
         path=path,
         title=title,
@@ -121,10 +127,12 @@ def structure(
         globals=tuple(sorting.globals),
         options=tuple(sorting.options),
         temperatures=tuple(sorting.temperatures),
-        requests=tuple(sorting.requests) + tuple(line for script in scripts for line in script),
+        requests=tuple(sorting.requests) + tuple(line for script in scripts for line in script.lines),
         past=tuple(sorting.past.items()),
         sha256="",
         notes=tuple(sorting.notes),
+        passed=tuple(sorting.passed),
+        scripts=scripts,
         blocks=tuple(map(tuple, sorting.blocks)),
         within=sorting.within,
     )
@@ -151,24 +159,26 @@ def _sort(sorting: _Sorting, number: int, site: Site) -> tuple[Item, ...]:
         if word[0].upper() not in READ:
             return ()
         items = parse_element(site)
-        _count(sorting.past, word[0].upper(), items)
+        _count(sorting, number, word[0].upper(), items)
         return items
     if head in ANALYSES:
-        sorting.past["analysis"] += 1
+        sorting.pass_over(number, "analysis")
         sorting.requests.append(text)
         return ()
     if head in OUTPUTS:
-        sorting.past[OUTPUTS[head]] += 1
+        sorting.pass_over(number, OUTPUTS[head])
         sorting.requests.append(text)
         return ()
     if head in WITHOUT_EFFECT:
-        sorting.past[head] += 1
+        sorting.pass_over(number, head)
         return ()
     if head in OPTIONS:
         items = parse_card(site)
         settings = option_settings(site, items)
         sorting.options.append(number)
-        sorting.past["option"] += sum(fold(setting.name.text) not in EFFECTIVE for setting in settings)
+        for setting in settings:
+            if fold(setting.name.text) not in EFFECTIVE:
+                sorting.pass_over(number, "option", setting.name.text)
         return items
     sort = _DOT_CARDS.get(head)
     if sort is None:
@@ -176,17 +186,17 @@ def _sort(sorting: _Sorting, number: int, site: Site) -> tuple[Item, ...]:
     return sort(sorting, number, site)
 
 
-def _count(past: Counter[str], letter: str, items: tuple[Item, ...]) -> None:
+def _count(sorting: _Sorting, number: int, letter: str, items: tuple[Item, ...]) -> None:
     """Count what an element card may carry without effect on operating point and AC."""
     for item in flattened(items):
         if isinstance(item, Setting):
             name = fold(item.name.text)
             if name in ("ic", "icvbe", "icvce"):
-                past["initial condition"] += 1
+                sorting.pass_over(number, "initial condition", item.name.text)
             elif name == "noisy":
-                past["noise switch"] += 1
+                sorting.pass_over(number, "noise switch", item.name.text)
         elif letter in "VI" and isinstance(item, Word) and fold(item.text) in TIME_FUNCTIONS:
-            past["time function"] += 1
+            sorting.pass_over(number, "time function", item.text)
 
 
 def _subckt(sorting: _Sorting, number: int, site: Site) -> tuple[Item, ...]:

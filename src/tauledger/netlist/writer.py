@@ -20,7 +20,7 @@ _FLAGS = frozenset({"off", "on", "thermal"})
 def flat_netlist(circuit: Circuit) -> str:
     """Write a circuit as a flat deck."""
     nodes = _distinct(circuit.nodes)
-    elements = _element_names(circuit)
+    elements = element_names(circuit)
     models = dict(zip((model.name for model in circuit.models), _distinct(m.name for m in circuit.models), strict=True))
     passives = circuit.passives
     lines = [f"* {circuit.title}".rstrip()]
@@ -120,7 +120,7 @@ def _model(name: str, model: Model) -> str:
     return " ".join(words)
 
 
-def _element_names(circuit: Circuit) -> dict[str, str]:
+def element_names(circuit: Circuit) -> dict[str, str]:
     """Give the name on the card by folded flat name: it must begin with the element's letter."""
     flat = [*zip(circuit.passives.kind, circuit.passives.name, strict=True)]
     flat += [(element.letter, element.name) for element in circuit.elements]
