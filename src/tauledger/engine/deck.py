@@ -64,6 +64,9 @@ def write_deck(circuit: Circuit, *, tight: bool = True) -> Deck:
         words = _Words(circuit, nodes, elements, models, amplitudes)
         cards.append(" ".join((name, *_behind_name(element, words))))
     cards += [_model(models[fold(model.name)], model) for model in circuit.models]
+    if circuit.nodesets:
+        starts = (f"v({nodes[node]})={_number(volt, circuit.nodes[node])}" for node, volt in circuit.nodesets)
+        cards.append(" ".join((".nodeset", *starts)))
     cards.append(".end")
     return Deck(
         text="\n".join(cards) + "\n",
