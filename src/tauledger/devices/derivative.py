@@ -54,7 +54,7 @@ def _slope(formula: Formula, circuit: Circuit, bias: Bias) -> Slope:
         case Number(value=value):
             return Slope(value, {})
         case Voltage(plus=plus, minus=minus):
-            by = {} if plus == minus else {formula: 1.0}
+            by: dict[Control, float] = {} if plus == minus else {formula: 1.0}
             return Slope(float(bias.voltages[plus] - bias.voltages[minus]), by)
         case Current(source=source):
             return Slope(bias.currents[source], {formula: 1.0})
