@@ -1,0 +1,171 @@
+"""Fitted transistors in an amplifier: the rebuilt network against ngspice over bias, polarity, size, temperature."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+import numpy as np
+import pytest
+
+from tauledger.circuit import NO_CHANGE, Change
+from tauledger.devices.family import Device
+from tauledger.engine.client import Engine
+from tauledger.errors import NetlistError
+from tauledger.netlist import elaborate, read
+from tauledger.network.solve import response
+from tauledger.numbers import Numbers, solve
+
+AGREES = 1e-6
+
+STAGE = """River-level gauge, one fitted transistor
+VDD vdd 0 {supply}
+VIN in 0 DC {drive} AC 1
+RS in g 1k
+RD vdd d {load}
+{card}
+RE e 0 {degeneration}
+CL d 0 1p
+VB b 0 {body}
+.model m {model}
+.ac dec 10 10 100meg
+.print ac v(d)
+.end
+"""
+
+VBIC = (
+    "(level=4 is=1e-16 ibei=1e-18 iben=5e-15 ibci=2e-17 ibcn=5e-15 isp=1e-15 rcx=10 rci=60 rbx=10 rbi=40 re=2 rs=20 "
+    "rbp=40 vef=10 ver=4 ikf=2m itf=80m xtf=20 tf=10p tr=100p cje=20f cjc=20f cjep=100f cjcp=400f vo=2 gamm=2e-11 "
+    "hrcf=2 qco=1e-12 xre=0.5 xrb=0.5)"
+)
+RCO = (
+    "(is=1e-16 bf=100 vaf=50 rb=100 rbm=20 irb=1m rc=10 re=1 rco=100 vo=2 gamma=1e-11 qco=1e-12 cje=1p cjc=0.5p "
+    "xcjc=.5 cjs=1p tf=20p tr=1n ikf=10m)"
+)
+HICUM = (
+    "(level=8 c10=1e-30 qp0=3e-14 ibeis=1e-18 t0=5e-12 rbx=5 re=2 rcx=5 rbi0=50 cjei0=10f cjci0=5f cjcx0=10f "
+    "cjep0=5f cjs0=30f)"
+)
+BSIM4 = (
+    "(level=14 version=4.8.0 rgatemod=3 rbodymod=1 rdsmod=1 rshg=10 xgw=1e-7 toxe=3e-9 vth0={sign}0.4 u0=0.04 "
+    "rdsw=100 rbpb=50 rbpd=50 rbps=50 rbdb=50 rbsb=50)"
+)
+TUNNEL = "(level=54 igcmod=1 igbmod=1 agidl=1e-10 toxe=1.5e-9 vth0=0.4)"
+BSIM3 = "(level=8 version=3.3.0 alpha0=1e-6 alpha1=0.1 beta0=20 rsh=10 vth0=0.5 tox=9e-9)"
+MES = "(level=1 vto=-2 beta=2.5m lambda=.05 rd=5 rs=5 cgs=1p cgd=.2p)"
+JFET = "(level=2 vto=-2 beta=1m cds=1p cgs=2p cgd=1p rd=10 rs=10)"
+
+
+def stage(card: str, model: str, supply: float, drive: float, load: str = "1k", body: float = 0.0, e: str = "0") -> str:
+    return STAGE.format(
+        supply=supply, drive=drive, load=load, card=card, degeneration="50" if e == "e" else "1", body=body, model=model
+    )
+
+
+CASES = {
+    "vbic active": stage("Q1 d g e b m", f"npn{VBIC}", 3, 0.85, e="e"),
+    "vbic off": stage("Q1 d g 0 b m", f"npn{VBIC}", 3, 0.2),
+    "vbic saturated": stage("Q1 d g 0 b m", f"npn{VBIC}", 3, 0.95, "20k"),
+    "vbic reversed": stage("Q1 d g 0 b m", f"npn{VBIC}", -1, 0.1, "2k", body=-2),
+    "vbic pnp m area": stage("Q1 d g e b m area=2 m=3", f"pnp{VBIC}", -3, -0.85, e="e"),
+    "vbic three terminals": stage("Q1 d g 0 m", f"npn{VBIC}", 3, 0.8),
+    "quasi-saturation active": stage("Q1 d g 0 b m", f"npn{RCO}", 5, 0.75),
+    "quasi-saturation saturated pnp": stage("Q1 d g 0 m area=2 m=3", f"pnp{RCO}", -5, -0.85, "5k"),
+    "hicum active": stage("Q1 d g 0 b m", f"npn{HICUM}", 3, 0.9, "500"),
+    "bsim4 saturation": stage("M1 d g 0 b m w=10u l=0.2u m=2", f"nmos{BSIM4.format(sign='')}", 1.5, 0.6, "2k"),
+    "bsim4 triode": stage("M1 d g 0 b m w=10u l=0.2u", f"nmos{BSIM4.format(sign='')}", 1.5, 1.2, "20k"),
+    "bsim4 reversed": stage("M1 d g 0 b m w=10u l=0.2u", f"nmos{BSIM4.format(sign='')}", -0.5, 0.7, "500", body=-1),
+    "bsim4 off": stage("M1 d g 0 b m w=10u l=0.2u", f"nmos{BSIM4.format(sign='')}", 1.5, 0.0, "5k"),
+    "bsim4 weak": stage("M1 d g 0 b m w=10u l=0.2u", f"nmos{BSIM4.format(sign='')}", 1.5, 0.3, "50k"),
+    "bsim4 pmos": stage("M1 d g 0 b m w=10u l=0.2u", f"pmos{BSIM4.format(sign='-')}", -1.5, -0.7, "5k"),
+    "bsim4 tunnelling": stage("M1 d g 0 b m w=10u l=0.2u", f"nmos{TUNNEL}", 1.5, 0.7, "1k"),
+    "bsim3 impact ionisation": stage("M1 d g 0 b m w=10u l=1u nrd=1 nrs=1 m=2", f"nmos{BSIM3}", 3, 1.5, "5k"),
+    "bsim1": stage(
+        "M1 d g 0 b m w=10u l=2u",
+        "nmos(level=4 vfb=-0.8 phi=0.7 k1=0.6 muz=600 tox=0.02 mus=700 cgso=1e-10 cgdo=1e-10 temp=27 vdd=5)",
+        3,
+        1.5,
+        "5k",
+    ),
+    "hisim2": stage("M1 d g 0 b m w=10u l=0.5u", "nmos(level=68)", 1.5, 0.8, "5k"),
+    "mesfet": stage("Z1 d g 0 m", f"nmf{MES}", 5, -0.5, "500"),
+    "mesfet triode": stage("Z1 d g 0 m area=2 m=2", f"nmf{MES}", 5, 0.0, "5k"),
+    "mesfet level 2": stage("Z1 d g 0 m l=1u w=20u", "nmf(level=2 rd=30 rs=30)", 3, 0.1, "500"),
+    "hfet level 5": stage("Z1 d g 0 m l=1u w=20u", "nhfet(level=5 rd=60 rs=60)", 3, 0.3, "500"),
+    "hfet level 6": stage("Z1 d g 0 m l=1u w=20u", "nhfet(level=6 rd=60 rs=60)", 3, 0.3, "500"),
+    "jfet level 2 with cds": stage("J1 d g 0 m", f"njf{JFET}", 10, -0.5, "2k"),
+}
+
+
+def solved(text: str, tmp_path: Path, engine: Engine, change: Change = NO_CHANGE) -> Numbers:
+    path = tmp_path / "stage.cir"
+    path.write_text(text)
+    return solve(read(path), change, engine)
+
+
+def device_of(numbers: Numbers) -> Device:
+    return numbers.devices[0]
+
+
+@pytest.mark.parametrize("case", CASES)
+def test_fitted_transistor_agrees_with_the_engine_in_an_amplifier(case: str, tmp_path: Path, engine: Engine) -> None:
+    numbers = solved(CASES[case], tmp_path, engine)
+    assert numbers.agreement is not None
+    assert numbers.agreement.max_relative_error <= AGREES
+    assert device_of(numbers).parts[-1].kind == "block"
+
+
+@pytest.mark.parametrize("temperature", [-40.0, 125.0])
+@pytest.mark.parametrize("case", ["vbic active", "bsim4 saturation", "mesfet", "quasi-saturation active"])
+def test_fitted_transistor_agrees_when_it_is_cold_or_hot(
+    case: str, temperature: float, tmp_path: Path, engine: Engine
+) -> None:
+    numbers = solved(CASES[case], tmp_path, engine, Change(temperature_c=temperature))
+    assert numbers.agreement is not None
+    assert numbers.agreement.max_relative_error <= AGREES
+
+
+@pytest.mark.parametrize(
+    ("case", "region"),
+    [
+        ("vbic active", "active"),
+        ("vbic off", "off"),
+        ("vbic saturated", "saturated"),
+        ("vbic reversed", "reversed"),
+        ("bsim4 saturation", "saturation"),
+        ("bsim4 triode", "triode"),
+        ("bsim4 reversed", "triode, reversed"),
+        ("mesfet triode", "triode"),
+        ("mesfet", "saturation"),
+    ],
+)
+def test_region_is_named_in_whole_words(case: str, region: str, tmp_path: Path, engine: Engine) -> None:
+    assert device_of(solved(CASES[case], tmp_path, engine)).region == region
+
+
+@pytest.mark.parametrize("case", ["vbic active", "bsim4 saturation", "mesfet", "bsim4 pmos"])
+def test_hand_model_of_a_fitted_transistor_is_its_low_frequency_gain(case: str, tmp_path: Path, engine: Engine) -> None:
+    # with RS ≪ 1/g_π and RE = 1 Ω or 50 Ω: v(d)/v(g) = −gm·(RD ‖ r_o)/(1 + gm·RE), to some per cent
+    numbers = solved(CASES[case], tmp_path, engine)
+    cell = device_of(numbers).cell
+    assert cell is not None
+    part = {p.name: p.value for p in numbers.network.parts if p.kind == "conductance"}
+    r_o = cell.r_o or float("inf")
+    load = 1.0 / (part["RD"] + 1.0 / r_o)
+    degeneration = 1.0 + cell.gm / part["RE"] if cell.common == "e" else 1.0
+    divider = 1.0 / (1.0 + 1e3 / (cell.r_pi * degeneration)) if cell.r_pi else 1.0
+    gain = abs(complex(response(numbers.network, np.array([1e3]))[0]))
+    assert gain == pytest.approx(cell.gm * load / degeneration * divider, rel=0.05)
+
+
+def test_a_delay_inside_a_fitted_transistor_is_refused_at_its_model(tmp_path: Path) -> None:
+    path = tmp_path / "stage.cir"
+    path.write_text(CASES["quasi-saturation active"].replace("rco=100", "rco=100 ptf=30"))
+    with pytest.raises(NetlistError, match=r"stage\.cir:\d+:\d+: .*PTF"):
+        elaborate(read(path), NO_CHANGE)
+
+
+def test_non_quasi_static_ac_is_refused_at_its_model(tmp_path: Path) -> None:
+    path = tmp_path / "stage.cir"
+    path.write_text(CASES["bsim4 saturation"].replace("rgatemod=3", "acnqsmod=1"))
+    with pytest.raises(NetlistError, match=r"stage\.cir:\d+:\d+: .*ACNQSMOD"):
+        elaborate(read(path), NO_CHANGE)
