@@ -99,6 +99,7 @@ def test_options_reach_the_review(run: Run, asked: dict[str, Any]) -> None:
         "midband_hz": 2.2e6,
         "timeout_s": 5.0,
         "library": "/opt/libngspice.so",
+        "page": None,
     }
 
 
@@ -122,6 +123,31 @@ def test_working_is_shown_for_the_nodes_that_are_asked_for(run: Run, asked: dict
     assert "--working nowhere: no signal node of that name" in err
     assert "signal nodes here: b" in err
     assert asked
+
+
+def test_a_page_is_read_before_anything_is_reviewed(run: Run, asked: dict[str, Any], tmp_path: Path) -> None:
+    page = tmp_path / "page.toml"
+    page.write_text("[node.b]\nresistence = 5\n", encoding="utf-8")
+    code, out, err = run("review", "board.cir", "--paper", str(page))
+    assert (code, out) == (ExitCode.UNUSABLE_INPUT, "")
+    assert f"{page}:2:1: no such figure of a node: resistence" in err
+    code, _, err = run("review", "board.cir", "--paper", str(tmp_path / "none.toml"))
+    assert (code, "cannot be read" in err) == (ExitCode.UNUSABLE_INPUT, True)
+    assert run("review", "a.cir", "b.cir", "--paper", str(page))[0] == ExitCode.UNUSABLE_INPUT
+    assert not asked
+    page.write_text("[node.b]\nresistance = 5\n", encoding="utf-8")
+    assert run("review", "board.cir", "--paper", str(page))[0] == ExitCode.OK
+    assert [claim.key for claim in asked["page"].claims] == ["resistance"]
+
+
+def test_an_empty_page_never_overwrites_one(run: Run, asked: dict[str, Any], tmp_path: Path) -> None:
+    page = tmp_path / "page.toml"
+    page.write_text("gain = 7\n", encoding="utf-8")
+    code, out, err = run("paper", "board.cir", "--to", str(page))
+    assert (code, out) == (ExitCode.UNUSABLE_INPUT, "")
+    assert "is there already" in err
+    assert page.read_text(encoding="utf-8") == "gain = 7\n"
+    assert not asked
 
 
 def test_methods_lists_rules_and_methods_within_80_columns(run: Run) -> None:

@@ -31,6 +31,7 @@ MAY_IMPORT: dict[str, set[str]] = {
     "engine": RECORDS | {"devices"},
     "network": RECORDS | {"devices"},
     "hand": BELOW_HAND,
+    "paper": BELOW_HAND | {"hand", "netlist"},
     "causes": BELOW_HAND | {"hand"},
     "report": {"record", "quantity"},
 }

@@ -8,18 +8,26 @@ simulated values are None and differences are against exact.
 from __future__ import annotations
 
 from pathlib import Path
+from typing import TYPE_CHECKING
+
+from msgspec.structs import replace
 
 from tauledger.circuit import NO_CHANGE, Change
 from tauledger.compose.review import compose
+from tauledger.compose.setting import unit_of
 from tauledger.devices.family import Device
 from tauledger.engine.client import Engine, start_engine
-from tauledger.explain import explain
+from tauledger.errors import InputError
+from tauledger.explain import Explanation, explain
 from tauledger.netlist import read
 from tauledger.network.assemble import Network
 from tauledger.numbers import Numbers, recompute, solve, solve_network
 from tauledger.record import Review
 
-__all__ = ["Numbers", "explain", "recompute", "review", "review_network", "solve", "solve_network"]
+if TYPE_CHECKING:
+    from tauledger.paper.page import Page
+
+__all__ = ["Numbers", "explain", "page_for", "recompute", "review", "review_network", "solve", "solve_network"]
 
 
 def review(
@@ -32,6 +40,7 @@ def review(
     change: Change = NO_CHANGE,
     timeout_s: float = 60.0,
     library: str | None = None,
+    page: Page | None = None,
 ) -> Review:
     """Review the netlist at `path`.
 
@@ -39,22 +48,83 @@ def review(
     and the ngspice library at `library` (None: the system's own).
     drive: the one source to drive with 1, None for all with an AC value. output: "out", "v(a,b)" or "i(vload)", None
     for the netlist's own hints. midband_hz: reference frequency in Hz, None to find the plateau.
+    page: the designer's own figures, of `paper.page.read_page`, to be set beside hand and exact.
     Raises NetlistError, InputError, EngineError (EngineMissing, EngineTimeout).
     """
     if engine is None:
         with start_engine(library=library, timeout_s=timeout_s) as own:
-            return review(path, engine=own, drive=drive, output=output, midband_hz=midband_hz, change=change)
+            return review(path, engine=own, drive=drive, output=output, midband_hz=midband_hz, change=change, page=page)
     netlist = read(path)
     numbers = solve(netlist, change, engine, drive=drive, output=output, midband_hz=midband_hz)
-    return compose(numbers, explain(numbers), netlist=netlist)
+    explanation = explain(numbers)
+    found = compose(numbers, explanation, netlist=netlist)
+    return found if page is None else _with_page(found, page, numbers, explanation)
 
 
 def review_network(
-    network: Network, *, devices: tuple[Device, ...] = (), midband_hz: float | None = None, title: str = ""
+    network: Network,
+    *,
+    devices: tuple[Device, ...] = (),
+    midband_hz: float | None = None,
+    title: str = "",
+    page: Page | None = None,
 ) -> Review:
     """Review a network that was built from parts, without netlist and engine.
 
-    Raises NetworkError where the network has no unique solution.
+    Raises NetworkError where the network has no unique solution, NetlistError where the page does not fit it.
     """
     numbers = solve_network(network, devices=devices, midband_hz=midband_hz)
-    return compose(numbers, explain(numbers), title=title)
+    explanation = explain(numbers)
+    found = compose(numbers, explanation, title=title)
+    return found if page is None else _with_page(found, page, numbers, explanation)
+
+
+def page_for(
+    path: str | Path,
+    *,
+    page: str,
+    engine: Engine,
+    drive: str | None = None,
+    output: str | None = None,
+    midband_hz: float | None = None,
+) -> str:
+    """Give the text of an empty page for the netlist at `path`; `page` is the name that it will have.
+
+    Raises NetlistError, InputError, EngineError.
+    """
+    from tauledger.paper.compare import known_figures
+    from tauledger.paper.empty import empty_page
+
+    netlist = read(path)
+    numbers = solve(netlist, NO_CHANGE, engine, drive=drive, output=output, midband_hz=midband_hz)
+    explanation = explain(numbers)
+    return empty_page(
+        title=netlist.title,
+        netlist=str(path),
+        page=page,
+        gain_unit=unit_of(numbers),
+        nodes=explanation.hand.nodes if explanation.hand else (),
+        figures=known_figures(numbers.devices),
+    )
+
+
+def _with_page(found: Review, page: Page, numbers: Numbers, explanation: Explanation) -> Review:
+    """Set the page's figures beside hand and exact; nothing can be said where the network is not trusted."""
+    from tauledger.paper.compare import Subject, compare
+
+    if not numbers.trusted:
+        raise InputError(f"{page.path}: no figure can be checked", "the rebuilt network is not the simulated circuit")
+    edges = {
+        name: (facts.simulated_hz if facts.simulated_hz is not None else facts.exact_hz) if facts else None
+        for name, facts in (("f_high", found.f_high), ("f_low", found.f_low))
+    }
+    subject = Subject(
+        bands=numbers.bands,
+        devices=numbers.devices,
+        hand=explanation.hand,
+        f_high=edges["f_high"],
+        f_low=edges["f_low"],
+        gain_unit=found.midband.unit,
+        temperature_c=found.temperature_c,
+    )
+    return replace(found, paper=compare(page, subject))

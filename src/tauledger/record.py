@@ -380,7 +380,7 @@ class NamedNumber(Struct, frozen=True):
 
 class CauseFacts(Struct, frozen=True):
     """Why hand and simulation differ. cause: fixed id. effect: fraction by which it moves `quantity`. says,
-    instead: sentences."""
+    instead: sentences. on_paper: holds for paper that leaves out what the hand side here has."""
 
     cause: str
     quantity: str
@@ -389,6 +389,7 @@ class CauseFacts(Struct, frozen=True):
     says: str
     instead: str
     numbers: tuple[NamedNumber, ...]
+    on_paper: bool = False
 
 
 class NoteFacts(Struct, frozen=True):
@@ -396,6 +397,29 @@ class NoteFacts(Struct, frozen=True):
 
     note: str
     where: str
+    says: str
+
+
+class PaperFigure(Struct, frozen=True):
+    """One figure of the designer's own page beside hand and exact.
+
+    where: node or device as the page names it, empty for the whole circuit. key: as on the page. line: where it stands.
+    hand: None where paper reads it from the operating point. exact: of an edge the simulated value where there is one.
+    off: yours/exact − 1, of gains by size. slip: id of the slip that reproduces it within 1 %, empty where it agrees or
+    none does; slip_gives: what that slip gives. says: the verdict in words.
+    """
+
+    where: str
+    key: str
+    title: str
+    unit: str
+    line: int
+    yours: float
+    hand: float | None
+    exact: float | None
+    off: float | None
+    slip: str
+    slip_gives: float | None
     says: str
 
 
@@ -427,3 +451,4 @@ class Review(Struct, frozen=True):
     causes: tuple[CauseFacts, ...]
     notes: tuple[NoteFacts, ...]
     cautions: tuple[str, ...] = ()
+    paper: tuple[PaperFigure, ...] = ()

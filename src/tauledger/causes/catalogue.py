@@ -7,10 +7,12 @@ from collections.abc import Callable
 from tauledger.causes import notes
 from tauledger.causes.cause import Cause, Note
 from tauledger.causes.complex_poles import complex_poles_above, complex_poles_below
+from tauledger.causes.edges_interact import lower_edge_near_upper, upper_edge_near_lower
 from tauledger.causes.evidence import Evidence
 from tauledger.causes.gain_falls_first import gain_falls_first
 from tauledger.causes.interaction import interaction_above, interaction_below
 from tauledger.causes.no_dominant_pole import no_dominant_pole_above, no_dominant_pole_below
+from tauledger.causes.on_paper import base_resistance, degeneration_ignored
 from tauledger.causes.output_left_out import other_node_left_out, output_left_out
 from tauledger.causes.zero_near_edge import zero_near_lower_edge, zero_near_upper_edge
 
@@ -26,6 +28,10 @@ CAUSES: tuple[Callable[[Evidence], Cause | None], ...] = (
     complex_poles_below,
     zero_near_upper_edge,
     zero_near_lower_edge,
+    upper_edge_near_lower,
+    lower_edge_near_upper,
+    base_resistance,
+    degeneration_ignored,
 )
 
 NOTES: tuple[Callable[[Evidence], Note | None], ...] = (
@@ -47,10 +53,10 @@ WORTH_TELLING = 0.02
 
 
 def find_causes(evidence: Evidence) -> tuple[Cause, ...]:
-    """Give the causes that move an edge by 2 % or more, the largest effect first."""
+    """Give the causes that move an edge by 2 % or more, the largest effect first, what paper may leave out last."""
     found = [cause for cause in (look(evidence) for look in CAUSES) if cause is not None]
     worth = [cause for cause in found if abs(cause.effect) >= WORTH_TELLING]
-    return tuple(sorted(worth, key=lambda cause: -abs(cause.effect)))
+    return tuple(sorted(worth, key=lambda cause: (cause.on_paper, -abs(cause.effect))))
 
 
 def find_notes(evidence: Evidence) -> tuple[Note, ...]:

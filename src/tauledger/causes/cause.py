@@ -16,7 +16,8 @@ class Cause(Struct, frozen=True):
 
     cause: fixed id. quantity: which band edge. effect: fraction by which it moves that edge, as the cause defines it.
     where: node, capacitor or pole. says: what happens, one sentence. instead: what to do on paper instead.
-    numbers: what the sentence rests on.
+    numbers: what the sentence rests on. on_paper: holds for paper that leaves something out which the hand side here
+    has; told after the others.
     """
 
     cause: str
@@ -26,6 +27,7 @@ class Cause(Struct, frozen=True):
     says: str
     instead: str
     numbers: tuple[NamedNumber, ...] = ()
+    on_paper: bool = False
 
 
 class Note(Struct, frozen=True):
@@ -38,7 +40,16 @@ class Note(Struct, frozen=True):
 
 def cause_facts(cause: Cause) -> CauseFacts:
     """Give the cause as the review carries it."""
-    return CauseFacts(cause.cause, cause.quantity, cause.effect, cause.where, cause.says, cause.instead, cause.numbers)
+    return CauseFacts(
+        cause.cause,
+        cause.quantity,
+        cause.effect,
+        cause.where,
+        cause.says,
+        cause.instead,
+        cause.numbers,
+        cause.on_paper,
+    )
 
 
 def note_facts(note: Note) -> NoteFacts:

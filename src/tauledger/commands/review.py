@@ -14,6 +14,7 @@ from tauledger.errors import ExitCode, InputError
 from tauledger.report.progress import progress
 
 if TYPE_CHECKING:
+    from tauledger.paper.page import Page
     from tauledger.record import NodeRow, Review
 
 _COLOR_CHOICES = ("auto", "always", "never")
@@ -33,6 +34,7 @@ _EXIT_CODES = (
 @click.option("--timeout", metavar="S", type=float, default=60.0, show_default=True, help="Seconds ngspice may take.")
 @click.option("--library", metavar="PATH", help="Use this ngspice library.")
 @click.option("--color", type=click.Choice(_COLOR_CHOICES), default="auto", show_default=True, help="Colour the text.")
+@click.option("--paper", metavar="PAGE", help="Set your own figures in PAGE (TOML) beside hand and exact.")
 @click.option("--working", metavar="NODE", multiple=True, help="Work a signal node out, line by line; repeatable.")
 @click.option("--verbose", is_flag=True, help="Show every node, part, pole and zero, and the working.")
 def review_command(
@@ -45,6 +47,7 @@ def review_command(
     timeout: float,
     library: str | None,
     color: str,
+    paper: str | None,
     working: tuple[str, ...],
     verbose: bool,
 ) -> ExitCode:
@@ -56,6 +59,9 @@ def review_command(
     midband_hz = None if midband is None else hertz("--midband", midband)
     if json_file is not None and len(netlists) > 1:
         raise InputError(f"--json {json_file}: one document holds one review", "give one netlist")
+    if paper is not None and len(netlists) > 1:
+        raise InputError(f"--paper {paper}: one page is for one netlist", "give one netlist")
+    page = None if paper is None else _page(paper)
     target = None if json_file in (None, "-") else writable("--json", Path(str(json_file)))
     files, folder = report_files(report, netlists=len(netlists)) if report else ([], None)
 
@@ -66,7 +72,7 @@ def review_command(
         with start_engine(library=library, timeout_s=timeout) as engine:
             from tauledger.pipeline import review
 
-            return review(netlist, engine=engine, drive=drive, output=output, midband_hz=midband_hz)
+            return review(netlist, engine=engine, drive=drive, output=output, midband_hz=midband_hz, page=page)
 
     def show(found: Review) -> None:
         from tauledger.report.terminal import render
@@ -98,6 +104,20 @@ def review_command(
         write("--json", target, document)
     show(found)
     return _verdict(found)
+
+
+def _page(paper: str) -> Page:
+    from tauledger.paper.page import read_page
+
+    try:
+        text = Path(paper).read_bytes().decode("utf-8")
+    except OSError as error:
+        raise InputError(
+            f"--paper {paper}: cannot be read: {error.strerror}", "`tauledger paper` writes one"
+        ) from error
+    except UnicodeDecodeError as error:
+        raise InputError(f"--paper {paper}: is not UTF-8 text", "save the page as UTF-8") from error
+    return read_page(text, paper)
 
 
 def _nodes(found: Review, working: tuple[str, ...]) -> list[NodeRow]:

@@ -1,0 +1,109 @@
+"""What paper often leaves out although the circuit has it: r_b, and degeneration.
+
+The hand side here has both. Their effect is that of the exact f_H, recomputed with them shorted: it says how far off a
+page is that leaves them out, so these causes come after those of the hand estimate itself.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+from tauledger.causes.cause import Cause
+from tauledger.causes.evidence import Evidence
+from tauledger.circuit import GROUND
+from tauledger.devices.parts import Part
+from tauledger.network.recompute import edge_frequencies, scaled
+from tauledger.quantity import engineering, percent
+from tauledger.record import NamedNumber
+
+SHORTED = 1e7
+DIFFERS = 0.02
+AT_BASE = "g_b"
+
+
+def base_resistance(evidence: Evidence) -> Cause | None:
+    """Paper without r_b. Effect: exact f_H with every r_b shorted ÷ exact f_H."""
+    series = [part for part in evidence.bands.network.parts if part.label == AT_BASE]
+    effect = _without(evidence, series)
+    if effect is None:
+        return None
+    named = _named(series)
+    stands = "stands" if len(series) == 1 else "stand"
+    return Cause(
+        cause="base-resistance",
+        quantity="f_H",
+        effect=effect,
+        where=named,
+        says=f"{named} {stands} before the capacitances inside; paper without it comes out {_off(effect)}",
+        instead="count C_π and C_μ from behind r_b, with R = r_b + what the base sees, beside r_π",
+        numbers=tuple(NamedNumber(f"r_b of {part.owner}", 1.0 / part.value, "Ω") for part in series),
+        on_paper=True,
+    )
+
+
+def degeneration_ignored(evidence: Evidence) -> Cause | None:
+    """Paper with gm for G_m and C_π not bootstrapped. Effect: exact f_H with emitters (sources) at ground ÷ exact."""
+    resistors = _degenerating(evidence)
+    effect = _without(evidence, resistors)
+    if effect is None:
+        return None
+    named = ", ".join(f"{part.owner} ({engineering(1.0 / part.value, 'Ω', 3)})" for part in resistors)
+    degenerates = "degenerates" if len(resistors) == 1 else "degenerate"
+    return Cause(
+        cause="degeneration-ignored",
+        quantity="f_H",
+        effect=effect,
+        where=named,
+        says=f"{named} {degenerates}; paper with gm for gm/(1 + gm·R_E) and all of C_π comes out {_off(effect)}",
+        instead="take the gain from G_m = gm/(1 + gm·R_E), and C_π divided by 1 + gm·R_E at the input",
+        numbers=tuple(NamedNumber(part.owner, 1.0 / part.value, "Ω") for part in resistors),
+        on_paper=True,
+    )
+
+
+def _without(evidence: Evidence, parts: Sequence[Part]) -> float | None:
+    """Give f_H with the parts shorted ÷ f_H − 1; None where hand and exact agree within 2 %, or there is no f_H."""
+    hz, combined = evidence.upper.hz, evidence.upper.combined
+    if not parts or hz is None or combined is None or combined.lowest is None:
+        return None
+    if abs(combined.lowest / hz - 1.0) <= DIFFERS:
+        return None
+    bands = evidence.bands
+    changed = scaled(bands.network, {part.name: SHORTED for part in parts})
+    edges = edge_frequencies(changed, bands.midband)
+    return edges.f_high / hz - 1.0 if edges.f_high is not None else None
+
+
+def _degenerating(evidence: Evidence) -> list[Part]:
+    """List the resistors from an emitter or source to AC ground that the signal passes with gm·R_E above 0.1."""
+    bands = evidence.bands
+    found: dict[str, Part] = {}
+    for device in evidence.devices:
+        cell = device.cell
+        if cell is None:
+            continue
+        outer = next((t.outer for t in device.terminals if t.inner == cell.common), cell.common)
+        collector = next((t.outer for t in device.terminals if t.inner == cell.output), cell.output)
+        here = bands.merged.get(outer, outer)
+        # a follower's collector rests: its emitter resistor is its load
+        if here == GROUND or not _passed(evidence, bands.merged.get(collector, collector)):
+            continue
+        for part in bands.upper.parts:
+            ends = set(part.nodes)
+            grounded = part.kind == "conductance" and not part.label and ends == {here, GROUND}
+            if grounded and cell.gm > 0.1 * part.value:
+                found[part.name] = part
+    return list(found.values())
+
+
+def _passed(evidence: Evidence, node: str) -> bool:
+    return any(row.in_path and node in {line.at for line in row.lines} | {*row.members} for row in evidence.nodes)
+
+
+def _named(series: Sequence[Part]) -> str:
+    told = [f"r_b of {part.owner} ({engineering(1.0 / part.value, 'Ω', 3)})" for part in series[:2]]
+    return ", ".join(told) + (f" and {len(series) - 2} more" if len(series) > 2 else "")
+
+
+def _off(effect: float) -> str:
+    return f"{percent(abs(effect)).removeprefix('+')} {'high' if effect > 0 else 'low'}"

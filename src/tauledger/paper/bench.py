@@ -1,0 +1,190 @@
+"""The circuit worked once more with something changed: what a designer who made that slip would have got.
+
+Resistances and gains are taken from the changed mid-band network, which is what the looking-in rules give; time
+constants are formed from them as on paper, with Miller's factors.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Callable, Mapping
+
+import numpy as np
+from msgspec import Struct
+from msgspec.structs import replace
+from numpy.typing import NDArray
+
+from tauledger.circuit import GROUND
+from tauledger.errors import NetworkError
+from tauledger.hand.combine import first_fall
+from tauledger.hand.estimate import HandEstimate, InnerLine, MillerTerm, SignalNode
+from tauledger.hand.halves import counted, images
+from tauledger.network.assemble import Network, assemble
+from tauledger.network.bands import Bands
+from tauledger.network.lower import short_constants
+
+FAR_END = "1 + 1/|A|"
+
+Edit = Mapping[str, float]
+
+
+class Split(Struct, frozen=True):
+    """What a factor may depend on: the capacitance, K driven from its node (of the changed network), the overall gain.
+
+    far_end: it is counted at the far end of an inverting stage, with K the gain from there. grounded: at AC ground.
+    """
+
+    part: str
+    gain: float
+    overall: float
+    far_end: bool
+    grounded: bool
+    mirrored: bool
+
+
+Factor = Callable[[Split], float]
+
+
+class AtNode(Struct, frozen=True):
+    """One signal node worked again: ohm, F, s, and K of the capacitance that the gain multiplies most (None: none)."""
+
+    resistance: float
+    capacitance: float
+    time_constant: float
+    miller_gain: float | None
+
+
+class Worked(Struct, frozen=True):
+    """The whole worked again. nodes: by name. gain: overall. edges: by edge and method, Hz."""
+
+    nodes: Mapping[str, AtNode]
+    gain: float
+    edges: Mapping[tuple[str, str], float]
+
+
+def miller_factor(split: Split) -> float:
+    """Give the factor that is right: 1 − K at the driven end, 1 + 1/|A| at the far end, 1 to AC ground."""
+    if split.grounded:
+        return 1.0
+    if split.mirrored:
+        return 2.0
+    if split.far_end:
+        return 1.0 - 1.0 / split.gain if split.gain < 0.0 else 1.0
+    return 1.0 - split.gain
+
+
+def work(bands: Bands, hand: HandEstimate, edit: Edit, factor: Factor = miller_factor) -> Worked | None:
+    """Work the circuit with the values of some parts multiplied and Miller's factors by `factor`.
+
+    edit: factor by part name; 0 takes a conductance or capacitance out. None where the changed network has no solution.
+    """
+    changed = replace(
+        bands,
+        network=_edited(bands.network, edit),
+        upper=_edited(bands.upper, edit),
+        lower=_edited(bands.lower, edit),
+    )
+    upper = changed.upper
+    try:
+        z = np.asarray(np.linalg.inv(upper.conductance.dense(upper.size)), dtype=np.float64)
+        shorts = short_constants(changed)
+    except (np.linalg.LinAlgError, NetworkError):
+        return None
+    gain = float((upper.output @ z @ upper.drive).real)
+    opposite = images(hand.nodes)
+    farad = {part.name: part.value for part in changed.network.parts}
+    nodes = {row.name: _node(row, changed, z, gain, opposite, farad, factor) for row in hand.nodes}
+    edges = _upper_edges([nodes[row.name].time_constant for row in counted(hand.nodes).rows])
+    wanted = {name for row in hand.lower if row.in_path for name in row.parts}
+    edges |= _lower_edges([part.edge_hz for part in shorts.parts if wanted.intersection(part.names)])
+    return Worked(nodes, gain, edges)
+
+
+def bridging(row: SignalNode) -> tuple[InnerLine, MillerTerm] | None:
+    """Give the capacitance at a node that its gain multiplies most, and the line it stands on; None without one."""
+    terms = [
+        (line, term)
+        for line in row.lines
+        for term in line.capacitances
+        if term.gain and not term.text.startswith(FAR_END) and not (term.factor == 2.0 and term.gain == -1.0)
+    ]
+    return max(terms, key=lambda found: abs(found[1].farad * found[1].gain), default=None)
+
+
+def _node(
+    row: SignalNode,
+    bands: Bands,
+    z: NDArray[np.float64],
+    overall: float,
+    opposite: Mapping[str, str],
+    farad: Mapping[str, float],
+    factor: Factor,
+) -> AtNode:
+    upper = bands.upper
+    main = bridging(row)
+    tau, first, gain = 0.0, math.nan, None
+    for line in row.lines:
+        column = _driven(upper, z, line.at, opposite)
+        ohm = float(column[upper.index(line.at)])
+        first = ohm if line is row.lines[0] else first
+        for term in line.capacitances:
+            split = _split(bands, z, line, term, column, opposite, overall)
+            tau += ohm * farad[term.part] * factor(split)
+            if main is not None and line is main[0] and term is main[1]:
+                gain = split.gain
+    return AtNode(first, tau / first if first else math.nan, tau, gain)
+
+
+def _split(
+    bands: Bands,
+    z: NDArray[np.float64],
+    line: InnerLine,
+    term: MillerTerm,
+    column: NDArray[np.float64],
+    opposite: Mapping[str, str],
+    overall: float,
+) -> Split:
+    upper, here = bands.upper, bands.upper.index(line.at)
+    mirrored = term.factor == 2.0 and term.gain == -1.0 and not term.text.startswith(FAR_END)
+    ends = {bands.merged[end] for end in bands.network.part(term.part).nodes} - {line.at, GROUND}
+    far = next(iter(ends), None)
+    if far is None:
+        return Split(term.part, 0.0, overall, far_end=False, grounded=True, mirrored=False)
+    far_end = term.text.startswith(FAR_END)
+    if far_end:
+        back = _driven(upper, z, far, opposite)
+        gain = float(back[here] / back[upper.index(far)])
+    else:
+        gain = float(column[upper.index(far)] / column[here])
+    return Split(term.part, gain, overall, far_end, grounded=False, mirrored=mirrored)
+
+
+def _driven(upper: Network, z: NDArray[np.float64], node: str, opposite: Mapping[str, str]) -> NDArray[np.float64]:
+    column = z[:, upper.index(node)]
+    return column - z[:, upper.index(opposite[node])] if node in opposite else column
+
+
+def _edited(network: Network, edit: Edit) -> Network:
+    if not edit:
+        return network
+    parts = tuple(replace(part, value=part.value * edit.get(part.name, 1.0)) for part in network.parts)
+    return assemble(parts, network.port, network.amplitudes)
+
+
+def _upper_edges(taus: list[float]) -> dict[tuple[str, str], float]:
+    positive = [tau for tau in taus if tau > 0.0]
+    if not positive:
+        return {}
+    together = first_fall(np.array([-1.0 / tau for tau in positive], dtype=complex), np.empty(0, dtype=complex))
+    found = {("f_high", "lowest node alone"): 1.0 / max(positive), ("f_high", "sum of time constants"): 1.0 / sum(taus)}
+    found |= {("f_high", "all nodes together"): together} if together else {}
+    return {key: omega / (2.0 * math.pi) for key, omega in found.items() if omega > 0.0}
+
+
+def _lower_edges(edges: list[float]) -> dict[tuple[str, str], float]:
+    positive = [edge for edge in edges if edge > 0.0 and math.isfinite(edge)]
+    if not positive:
+        return {}
+    found = {("f_low", "highest capacitor alone"): max(positive), ("f_low", "sum of time constants"): sum(positive)}
+    together = first_fall(np.array([-edge for edge in positive], dtype=complex) ** -1, np.empty(0, dtype=complex))
+    return found | ({("f_low", "all capacitors together"): 1.0 / together} if together else {})

@@ -1,0 +1,184 @@
+"""The known slips of a hand analysis: each changes the circuit, a Miller factor, or the figure itself.
+
+A slip on the circuit is a table of factors on the values of its parts; applied, it gives what a designer who made it
+would have written.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterable, Sequence
+
+from msgspec import Struct
+
+from tauledger.circuit import GROUND
+from tauledger.devices.parts import Part
+from tauledger.hand.equivalent import EquivalentCircuit
+from tauledger.hand.nodes import crossing
+from tauledger.network.bands import Bands
+from tauledger.paper.bench import Edit, Factor, Split, miller_factor
+
+BOLTZMANN_OVER_CHARGE = 8.617333262e-5
+ZERO_CELSIUS = 273.15
+SHORTED = 1e7
+RESTS = 0.05
+OVERALL_GAIN = "overall-gain"
+CONTROL_WORDS = ("base", "gate", "input")
+SERIES_AT_CONTROL = ("g_b", "r_b", "g_g")
+LOAD_CHARGES = ("c_sub", "c_cs", "c_js", "c_db", "c_bd")
+
+
+class Slip(Struct, frozen=True):
+    """One slip. id: fixed. says: what was done, as an engineer would say it.
+
+    edit: factor on the value of each part that it changes. factor: Miller's factor as the slip has it.
+    """
+
+    id: str
+    says: str
+    edit: Edit
+    factor: Factor = miller_factor
+
+
+def slips(bands: Bands, circuit: EquivalentCircuit, *, temperature_c: float) -> tuple[Slip, ...]:
+    """List the slips that this circuit gives occasion for.
+
+    circuit: the whole mid-band circuit. temperature_c: at which gm = I_C/V_T was taken.
+    """
+    parts = bands.network.parts
+    r_o, load = _output_conductances(parts, circuit), _load(bands)
+    found = [
+        Slip("r_o-forgotten", "r_o forgotten", _each(r_o, 0.0)),
+        Slip("load-forgotten", "the load forgotten", _each(load, 0.0)),
+        Slip("r_o-and-load-forgotten", "r_o and the load forgotten", _each((*r_o, *load), 0.0) if r_o and load else {}),
+        Slip("bias-twice", "the bias network counted twice", _each(_bias(bands, circuit), 2.0)),
+        Slip("r_b-forgotten", "r_b forgotten", _each(_labelled(parts, SERIES_AT_CONTROL), SHORTED)),
+        *_thermal_voltage(parts, temperature_c),
+        Slip("gm-for-G_m", "gm taken for G_m = gm/(1 + gm·R_E)", _each(_degeneration(bands, circuit), SHORTED)),
+        Slip(OVERALL_GAIN, "the overall gain taken for the gain of the bridged nodes", {}, _overall),
+        Slip("A-for-1-plus-A", "|A| taken for 1 + |A|", {}, _without_one),
+        Slip("c_mu-not-multiplied", "C_μ not multiplied", {}, _not_multiplied),
+        Slip("c_pi-not-bootstrapped", "C_π not bootstrapped", {}, _not_bootstrapped),
+        Slip("substrate-left-out", "C_cs left out", _each(_labelled(parts, LOAD_CHARGES), 0.0)),
+        Slip("load-capacitance-left-out", "C_L left out", _each(_load_capacitance(bands), 0.0)),
+    ]
+    return tuple(slip for slip in found if slip.edit or slip.factor is not miller_factor)
+
+
+def thermal_voltage(temperature_c: float) -> float:
+    """Give V_T = kT/q in V. Source: CODATA 2018, k/q = 8.617333262e-5 V/K."""
+    return BOLTZMANN_OVER_CHARGE * (temperature_c + ZERO_CELSIUS)
+
+
+def _overall(split: Split) -> float:
+    if split.grounded or split.mirrored or split.far_end or split.gain >= -1.0:
+        return miller_factor(split)
+    return 1.0 + abs(split.overall)
+
+
+def _without_one(split: Split) -> float:
+    plain = split.grounded or split.mirrored or split.far_end or split.gain >= 0.0
+    return miller_factor(split) if plain else -split.gain
+
+
+def _not_multiplied(split: Split) -> float:
+    return miller_factor(split) if split.mirrored or split.gain >= 0.0 else 1.0
+
+
+def _not_bootstrapped(split: Split) -> float:
+    return 1.0 if 0.0 < split.gain < 1.0 and not split.far_end else miller_factor(split)
+
+
+def _each(names: Iterable[str], factor: float) -> dict[str, float]:
+    return dict.fromkeys(names, factor)
+
+
+def _labelled(parts: Sequence[Part], labels: Sequence[str]) -> list[str]:
+    return [part.name for part in parts if part.label in labels]
+
+
+def _output_conductances(parts: Sequence[Part], circuit: EquivalentCircuit) -> list[str]:
+    """Name every g_o, and the resistors that stand between output and common node of a cell as its r_o."""
+    named = _labelled(parts, ("g_o", "g_ds", "gds"))
+    finite = {cell.owner for cell in circuit.cells if math.isfinite(cell.r_o)}
+    loose = [
+        part.name
+        for part in parts
+        if part.kind == "conductance" and not part.label
+        for cell in circuit.cells
+        if cell.owner in finite and GROUND not in (cell.common, cell.output)
+        if {circuit.at[node] for node in part.nodes} == {cell.common, cell.output}
+    ]
+    return [*named, *loose]
+
+
+def _load(bands: Bands) -> list[str]:
+    """Name the resistors from the output straight to ground."""
+    port = bands.network.port
+    ends = ({port.plus, GROUND}, {port.minus, GROUND}, {port.plus, port.minus})
+    return [
+        part.name
+        for part in bands.network.parts
+        if part.kind == "conductance" and not part.label and port.kind == "voltage" and set(part.nodes) in ends
+    ]
+
+
+def _load_capacitance(bands: Bands) -> list[str]:
+    port = bands.network.port
+    ends = ({port.plus, GROUND}, {port.minus, GROUND}, {port.plus, port.minus})
+    return [
+        part.name
+        for part in bands.network.parts
+        if part.kind == "capacitance" and not part.label and port.kind == "voltage" and set(part.nodes) in ends
+    ]
+
+
+def _bias(bands: Bands, circuit: EquivalentCircuit) -> list[str]:
+    """Name the resistors from a base or gate to AC ground or to a node at rest; the driven source's is none of them."""
+    inputs = {t.outer for t in circuit.terminals if t.word in CONTROL_WORDS and t.outer != GROUND}
+    found = []
+    for part in bands.network.parts:
+        if part.kind != "conductance" or part.label or circuit.driven & set(part.nodes):
+            continue
+        a, b = (circuit.at[node] for node in part.nodes)
+        for here, far in ((a, b), (b, a)):
+            if here in inputs and far != here and _rests(circuit, far):
+                found.append(part.name)
+                break
+    return found
+
+
+def _degeneration(bands: Bands, circuit: EquivalentCircuit) -> list[str]:
+    """Name the resistances between the common node of an inverting cell and AC ground, its own series one included."""
+    found = []
+    for cell in circuit.cells:
+        if cell.common == GROUND or cell.diode_connected:
+            continue
+        outer = next((t.outer for t in circuit.terminals if t.inner == cell.common), cell.common)
+        for part in bands.network.parts:
+            if part.kind != "conductance" or part.label in ("g_pi", "g_o"):
+                continue
+            ends = {circuit.at[node] for node in part.nodes}
+            own = part.owner == cell.owner and ends == {cell.common, outer}
+            far = next(iter(ends - {outer}), outer)
+            if own or (outer in ends and not part.label and far != outer and _rests(circuit, far)):
+                found.append(part.name)
+    return list(dict.fromkeys(found))
+
+
+def _rests(circuit: EquivalentCircuit, node: str) -> bool:
+    return node == GROUND or abs(crossing(circuit, node)) < RESTS
+
+
+def _thermal_voltage(parts: Sequence[Part], temperature_c: float) -> list[Slip]:
+    """gm = I_C/V_T with a round V_T, and r_π = β/gm with it."""
+    bipolar = {part.owner for part in parts if part.label == "g_pi"}
+    names = [part.name for part in parts if part.owner in bipolar and part.label in ("gm", "g_pi")]
+    return [
+        Slip(
+            f"thermal-voltage-{millivolt}",
+            f"V_T taken as {millivolt} mV",
+            _each(names, thermal_voltage(temperature_c) / (1e-3 * millivolt)),
+        )
+        for millivolt in (25, 26)
+    ]
