@@ -6,19 +6,26 @@ page is that leaves them out, so these causes come after those of the hand estim
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
+
+import numpy as np
 
 from tauledger.causes.cause import Cause
 from tauledger.causes.evidence import Evidence
 from tauledger.circuit import GROUND
 from tauledger.devices.parts import Part
-from tauledger.network.recompute import edge_frequencies, scaled
+from tauledger.network.assemble import Network
+from tauledger.network.recompute import scaled
+from tauledger.network.solve import response
 from tauledger.quantity import engineering, percent
 from tauledger.record import NamedNumber
 
 SHORTED = 1e7
 DIFFERS = 0.02
 AT_BASE = "g_b"
+REACH = 32.0
+POINTS = 48
 
 
 def base_resistance(evidence: Evidence) -> Cause | None:
@@ -70,8 +77,26 @@ def _without(evidence: Evidence, parts: Sequence[Part]) -> float | None:
         return None
     bands = evidence.bands
     changed = scaled(bands.network, {part.name: SHORTED for part in parts})
-    edges = edge_frequencies(changed, bands.midband)
-    return edges.f_high / hz - 1.0 if edges.f_high is not None else None
+    found = _edge_near(changed, bands.midband.frequency_hz, hz)
+    return found / hz - 1.0 if found is not None else None
+
+
+def _edge_near(network: Network, reference_hz: float, near_hz: float) -> float | None:
+    """Give the first −3 dB frequency in Hz from near/32 to near·32 (or from the reference), None without one there."""
+    level = abs(complex(response(network, np.array([reference_hz]))[0])) / math.sqrt(2.0)
+    start, stop = max(near_hz / REACH, reference_hz), near_hz * REACH
+    if not start < stop:
+        return None
+    for _ in range(3):
+        grid = np.geomspace(start, stop, POINTS)
+        size = np.abs(response(network, grid))
+        below = np.flatnonzero(size <= level)
+        if len(below) == 0 or below[0] == 0:
+            return None
+        first = int(below[0])
+        start, stop = float(grid[first - 1]), float(grid[first])
+    part = math.log(size[first - 1] / level) / math.log(size[first - 1] / size[first])
+    return float(start * (stop / start) ** part)
 
 
 def _degenerating(evidence: Evidence) -> list[Part]:
