@@ -10,6 +10,7 @@ from types import TracebackType
 import click
 
 from tauledger import __version__
+from tauledger.commands.devices import devices_command
 from tauledger.commands.methods import methods_command
 from tauledger.commands.netlist import netlist_command
 from tauledger.commands.paper import paper_command
@@ -39,6 +40,7 @@ def command() -> None:
 
 command.add_command(review_command)
 command.add_command(methods_command)
+command.add_command(devices_command)
 command.add_command(netlist_command)
 command.add_command(paper_command)
 

@@ -138,8 +138,8 @@ def stamped(parts: tuple[Part, ...], frequency_hz: np.ndarray) -> np.ndarray:
     place = {node: k for k, node in enumerate(rest.nodes)}
     g, c = np.array(rest.conductances), np.array(rest.capacitances)
     for part in parts[:-1]:
-        ends = [place[node] for node in (*part.nodes[:2], *part.nodes[-2:])]
-        stamp(c if part.kind == "capacitance" else g, *ends, part.value)
+        p, m, cp, cm = (place[node] for node in (*part.nodes[:2], *part.nodes[-2:]))
+        stamp(c if part.kind == "capacitance" else g, p, m, cp, cm, part.value)
     return Fit(3, g, c, 0.0).admittance(frequency_hz)
 
 

@@ -14,6 +14,7 @@ from tauledger.causes.interaction import interaction_above, interaction_below
 from tauledger.causes.no_dominant_pole import no_dominant_pole_above, no_dominant_pole_below
 from tauledger.causes.on_paper import base_resistance, degeneration_ignored
 from tauledger.causes.output_left_out import other_node_left_out, output_left_out
+from tauledger.causes.region import region_where_signal_passes
 from tauledger.causes.zero_near_edge import zero_near_lower_edge, zero_near_upper_edge
 
 CAUSES: tuple[Callable[[Evidence], Cause | None], ...] = (
@@ -47,6 +48,7 @@ NOTES: tuple[Callable[[Evidence], Note | None], ...] = (
     notes.tuned,
     notes.ideal_drive,
     notes.model_without_charge,
+    region_where_signal_passes,
 )
 
 WORTH_TELLING = 0.02

@@ -19,7 +19,12 @@ PASSES = 0.05
 
 def region_where_signal_passes(evidence: Evidence) -> Note | None:
     """Transistors in the signal path that are saturated, in triode, off or reversed."""
-    found = not_amplifying(evidence.bands.network, evidence.bands.midband, evidence.devices)
+    return region_note(evidence.bands.network, evidence.bands.midband, evidence.devices)
+
+
+def region_note(network: Network, midband: MidBand, devices: tuple[Device, ...]) -> Note | None:
+    """Word the note on the transistors that `not_amplifying` finds; None where there are none."""
+    found = not_amplifying(network, midband, devices)
     if not found:
         return None
     names = ", ".join(device.name for device in found)
@@ -27,8 +32,8 @@ def region_where_signal_passes(evidence: Evidence) -> Note | None:
     return Note(
         "region",
         names,
-        f"{told}, where signal passes: check the bias before any figure by hand, the small-signal model there is not an "
-        "amplifier's",
+        f"{told}, where signal passes: check the bias before any figure by hand, for it does not work there as an "
+        "amplifier does",
     )
 
 

@@ -48,7 +48,7 @@ def compose(numbers: Numbers, explanation: Explanation, *, netlist: Netlist | No
         schema=SCHEMA,
         tauledger=__version__,
         engine=EngineFacts(numbers.bias.engine.name, numbers.bias.engine.version) if numbers.bias else None,
-        netlist=_netlist_facts(netlist, title),
+        netlist=netlist_facts(netlist, title),
         temperature_c=numbers.circuit.temperature_c if numbers.circuit else 27.0,
         drive=drive_facts(numbers),
         output=output_facts(numbers),
@@ -81,7 +81,7 @@ def compose(numbers: Numbers, explanation: Explanation, *, netlist: Netlist | No
             )
             for row in (hand.stages if hand else ())
         ),
-        devices=device_facts(numbers),
+        devices=device_facts(numbers.devices),
         curves=curves(numbers, explanation),
         lines=source_lines(numbers, explanation, netlist),
         causes=tuple(cause_facts(cause) for cause in explanation.causes),
@@ -90,7 +90,8 @@ def compose(numbers: Numbers, explanation: Explanation, *, netlist: Netlist | No
     )
 
 
-def _netlist_facts(netlist: Netlist | None, title: str) -> NetlistFacts:
+def netlist_facts(netlist: Netlist | None, title: str) -> NetlistFacts:
+    """Say which netlist it was; a network built from parts has a title alone."""
     if netlist is None:
         return NetlistFacts("", title, "")
     return NetlistFacts(netlist.path, netlist.title, netlist.sha256, read_past(netlist))

@@ -3,11 +3,13 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Iterable
 
 import numpy as np
 from numpy.typing import NDArray
 
 from tauledger.circuit import GROUND, Circuit, fold
+from tauledger.devices.family import Device
 from tauledger.explain import Explanation
 from tauledger.netlist import Netlist, place
 from tauledger.network.solve import Complex, response
@@ -59,7 +61,7 @@ def unit_of(numbers: Numbers) -> str:
     return {"VV": "V/V", "VA": "Ω", "AV": "S", "AA": "A/A"}[out + into]
 
 
-def device_facts(numbers: Numbers) -> tuple[DeviceFacts, ...]:
+def device_facts(devices: Iterable[Device]) -> tuple[DeviceFacts, ...]:
     """Give every device that has an operating point to speak of: transistors and diodes, no controlled sources."""
     return tuple(
         DeviceFacts(
@@ -70,7 +72,7 @@ def device_facts(numbers: Numbers) -> tuple[DeviceFacts, ...]:
                 Figure(symbol, value, figure_unit(symbol)) for symbol, value in device.figures if math.isfinite(value)
             ),
         )
-        for device in numbers.devices
+        for device in devices
         if device.region
     )
 

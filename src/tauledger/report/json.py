@@ -17,7 +17,7 @@ def to_json(review: Review) -> bytes:
 
     Equal reviews give equal bytes. What is not finite becomes null, for JSON has no NaN.
     """
-    return msgspec.json.encode(_finite(msgspec.to_builtins(review))) + b"\n"
+    return msgspec.json.encode(finite(msgspec.to_builtins(review))) + b"\n"
 
 
 def schema() -> dict[str, Any]:
@@ -36,11 +36,12 @@ def schema_text() -> str:
     return msgspec.json.format(msgspec.json.encode(schema()), indent=1).decode() + "\n"
 
 
-def _finite(value: Any) -> Any:
+def finite(value: Any) -> Any:
+    """Put null in the place of numbers that are not finite, which JSON does not have."""
     if isinstance(value, float):
         return value if math.isfinite(value) else None
     if isinstance(value, dict):
-        return {name: _finite(entry) for name, entry in value.items()}
+        return {name: finite(entry) for name, entry in value.items()}
     if isinstance(value, list | tuple):
-        return [_finite(entry) for entry in value]
+        return [finite(entry) for entry in value]
     return value

@@ -1,0 +1,69 @@
+"""`tauledger devices`: one row per transistor, in textbook symbols, as text and as JSON."""
+
+from __future__ import annotations
+
+import json
+import math
+from pathlib import Path
+
+import pytest
+
+from tauledger.cli import main
+from tauledger.engine.client import Engine
+from tauledger.pipeline import devices
+from tauledger.report.devices import render, to_json
+
+FIXTURES = Path(__file__).parent.parent / "fixtures"
+PREAMP = FIXTURES / "echo_preamp.cir"
+
+SATURATED = """River-level gauge, a stage with too large a collector resistor
+VCC vcc 0 12
+VIN in 0 DC 2.5 AC 1
+RS in b 1k
+RC vcc c 10k
+RE e 0 470
+Q1 c b e n
+CL c 0 10p
+.model n npn(is=1e-15 bf=200 vaf=80 cje=5p cjc=2p tf=300p)
+.print ac v(c)
+.end
+"""
+
+
+def test_figures_of_a_bipolar_transistor_obey_the_textbook(engine: Engine) -> None:
+    found = devices(PREAMP, engine=engine)
+    row = found.devices[0]
+    value = {figure.symbol: figure.value for figure in row.figures}
+    assert (row.name, row.kind, row.region) == ("Q1", "npn", "active")
+    # gm = I_C/V_T less some per cent (nf = 1, high injection), r_pi = beta/gm with beta near 220
+    assert value["gm/I"] == pytest.approx(1.0 / 0.02587, rel=0.03)
+    assert value["gm"] == pytest.approx(value["gm/I"] * value["i_c"], rel=1e-12)
+    assert 150 < value["gm"] * value["r_pi"] < 250
+    assert value["f_t"] == pytest.approx(value["gm"] / (2 * math.pi * (value["c_pi"] + value["c_mu"])), rel=1e-9)
+    assert found.notes == ()
+
+
+def test_page_has_a_row_per_device_and_a_note_where_one_does_not_amplify(tmp_path: Path, engine: Engine) -> None:
+    path = tmp_path / "stage.cir"
+    path.write_text(SATURATED)
+    text = render(devices(path, engine=engine), unicode=True)
+    assert "Q1 npn  saturated" in text
+    assert "NOTE  Q1 is saturated, where signal passes" in " ".join(text.split()).replace("NOTE ", "NOTE  ")
+    assert max(len(line) for line in text.splitlines()) <= 80
+    for symbol in ("I_C", "V_CE", "gm", "gm/I", "r_π", "r_o", "C_π", "C_μ", "f_T"):
+        assert symbol in text
+
+
+def test_json_holds_plain_si_numbers_and_names_its_schema(engine: Engine) -> None:
+    document = json.loads(to_json(devices(PREAMP, engine=engine)))
+    assert document["schema"] == "tauledger.devices/1"
+    figures = {figure["symbol"]: figure for figure in document["devices"][0]["figures"]}
+    assert figures["i_c"]["unit"] == "A"
+    assert figures["i_c"]["value"] == pytest.approx(1.1e-3, rel=0.1)
+
+
+def test_command_prints_json_alone_on_standard_output(capfdbinary: pytest.CaptureFixture[bytes]) -> None:
+    with pytest.raises(SystemExit) as end:
+        main(["devices", str(PREAMP), "--json", "-"])
+    assert end.value.code == 0
+    assert json.loads(capfdbinary.readouterr().out)["devices"][0]["name"] == "Q1"
