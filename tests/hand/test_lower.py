@@ -62,9 +62,9 @@ def test_rules_equal_the_exact_resistance_in_all_worked_examples() -> None:
 
 def test_titles_say_what_a_capacitor_is_for() -> None:
     found = rows(boards.three_low_edges())
-    assert found["C1"].title == "coupling into input of Q1 (b)"
-    assert found["C2"].title == "bypass at common terminal of Q1 (e)"
-    assert found["C3"].title == "coupling into output (out)"
+    assert found["C1"].title == "C1, coupling into input of Q1 (b)"
+    assert found["C2"].title == "C2, bypass at common terminal of Q1 (e)"
+    assert found["C3"].title == "C3, coupling into output (out)"
 
 
 def test_parallel_capacitors_are_one_row() -> None:
@@ -92,7 +92,7 @@ def test_supply_decoupling_is_a_row_off_the_path() -> None:
     )
     found = {row.parts[0]: row for row in lower_rows(bands, devices)}
     assert not found["CV"].in_path
-    assert found["CV"].title == "decoupling at node vcc"
+    assert found["CV"].title == "CV, decoupling at node vcc"
     assert found["CE"].in_path
 
 

@@ -18,7 +18,7 @@ from tauledger.hand.budget import resistance_across
 from tauledger.hand.equivalent import EquivalentCircuit, equivalent_circuit, joined, joined_nodes
 from tauledger.hand.estimate import LookingIn, LowerRow
 from tauledger.hand.figures import plain
-from tauledger.hand.nodes import node_title
+from tauledger.hand.nodes import node_name, node_title
 from tauledger.network.bands import Bands
 from tauledger.network.lower import ShortConstant, short_constants
 from tauledger.network.solve import response
@@ -79,7 +79,7 @@ def _row(
     passed = _gain_left(bands, circuit)
     row = LowerRow(
         parts=names,
-        title=_title(circuit, ends, passed),
+        title=_title(circuit, ends, passed, bands, names),
         farad=farad,
         resistance=seen,
         resistance_exact_ohm=exact,
@@ -130,8 +130,9 @@ def _judged(row: LowerRow, weight: float, scale: float) -> LowerRow:
     part = abs(weight * row.edge_exact_hz) / scale if scale else 0.0
     if weight >= WEIGHT_IN_PATH or part >= EDGE_IN_PATH:
         return row
-    where = row.title.partition(" ")[2]
-    return replace(row, title=f"decoupling {where}", in_path=False)
+    named, _, how = row.title.partition(", ")
+    where = how.partition(" ")[2]
+    return replace(row, title=f"{named}, decoupling {where}", in_path=False)
 
 
 def _gain_left(bands: Bands, circuit: EquivalentCircuit) -> float:
@@ -142,11 +143,18 @@ def _gain_left(bands: Bands, circuit: EquivalentCircuit) -> float:
     return 0.0 if abs(left) < BLOCKS else left
 
 
-def _title(circuit: EquivalentCircuit, ends: tuple[str, str], passed: float) -> str:
-    """Say "bypass at emitter of Q1 (e)" or "coupling into base of Q1 (b)": into the end that rests when it is open."""
+def _title(
+    circuit: EquivalentCircuit, ends: tuple[str, str], passed: float, bands: Bands, names: tuple[str, ...]
+) -> str:
+    """Say "C2, bypass at emitter of Q1 (e)", "C1, coupling into base of Q1 (b)": into the end that rests when open.
+
+    Where other shorts join the capacitor with a better known node, its own node is named: it is soldered there.
+    """
     live = [node for node in ends if node != GROUND]
     still = min(live, key=lambda node: abs(circuit.voltage[circuit.row[node]]))
-    return f"{'coupling into' if passed == 0.0 else 'bypass at'} {node_title(circuit, still)}"
+    own = [node for node in bands.network.part(names[0]).nodes if circuit.at[node] == still]
+    title = node_title(circuit, still) if node_name(circuit, still) in own or not own else f"node {own[0]}"
+    return f"{' ‖ '.join(names)}, {'coupling into' if passed == 0.0 else 'bypass at'} {title}"
 
 
 def _direct_nodes(bands: Bands) -> Mapping[str, str]:
