@@ -90,6 +90,7 @@ def test_options_reach_the_review(run: Run, asked: dict[str, Any]) -> None:
     code, _, _ = run(
         *("review", "board.cir", "--input", "VS", "--output", "v(a,b)", "--midband", "2.2meg"),
         *("--timeout", "5", "--library", "/opt/libngspice.so"),
+        *("--set", "RL=2k", "--set", "nsmall.bf=100", "--allow-include", "../parts"),
     )
     assert code == ExitCode.OK
     assert asked == {
@@ -100,6 +101,8 @@ def test_options_reach_the_review(run: Run, asked: dict[str, Any]) -> None:
         "timeout_s": 5.0,
         "library": "/opt/libngspice.so",
         "page": None,
+        "settings": ("RL=2k", "nsmall.bf=100"),
+        "allow": ("../parts",),
     }
 
 

@@ -246,3 +246,27 @@ def test_one_picofarad_more_at_the_named_node_moves_the_edge_as_told(engine: Eng
         for farad in (1e-12, 1e-15)
     ]
     assert row.per_farad.f_high * 1e-12 == pytest.approx(moved[0] - moved[1], rel=0.02, abs=0)
+
+
+def test_settings_give_the_headline_of_the_edited_netlist_beside_that_of_the_netlist(
+    engine: Engine, tmp_path: Path
+) -> None:
+    path = FIXTURES / "echo_preamp.cir"
+    found = review(path, engine=engine, settings=["R3=4.7k"])
+    plain = review(path, engine=engine)
+    text = path.read_text()
+    edited = tmp_path / "edited.cir"
+    edited.write_text(text.replace("3.9k", "4.7k"))
+    assert text.count("3.9k") == 1
+    by_hand = review(edited, engine=engine)
+    moved = {row.figure: row for row in found.moved}
+    assert found.f_high == by_hand.f_high
+    for name, before, after in (("f_H", plain.f_high, by_hand.f_high), ("f_L", plain.f_low, by_hand.f_low)):
+        assert before is not None
+        assert after is not None
+        assert (moved[f"{name} simulated"].before, moved[f"{name} simulated"].after) == (
+            before.simulated_hz,
+            after.simulated_hz,
+        )
+        assert (moved[f"{name} by hand"].before, moved[f"{name} by hand"].after) == (before.hand_hz, after.hand_hz)
+    assert (moved["gain"].before, moved["gain"].after) == (plain.midband.gain_db, by_hand.midband.gain_db)

@@ -225,6 +225,20 @@ class Change(Struct, frozen=True):
 NO_CHANGE = Change()
 
 
+def joined(first: Change, second: Change) -> Change:
+    """Give both changes in one; where they set the same thing the second counts."""
+    models = {(fold(m), fold(p)): (m, p, value) for m, p, value in (*first.models, *second.models)}
+    return Change(
+        temperature_c=first.temperature_c if second.temperature_c is None else second.temperature_c,
+        parameters=tuple(
+            {fold(name): (name, value) for name, value in (*first.parameters, *second.parameters)}.values()
+        ),
+        elements=tuple({fold(name): (name, value) for name, value in (*first.elements, *second.elements)}.values()),
+        models=tuple(models.values()),
+        loads=first.loads + second.loads,
+    )
+
+
 class Circuit(Struct, frozen=True):
     """The flat circuit for operating point and AC: what the engine is given and the network is rebuilt from.
 

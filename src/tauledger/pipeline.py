@@ -7,27 +7,39 @@ simulated values are None and differences are against exact.
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING
 
 from msgspec.structs import replace
 
-from tauledger.circuit import NO_CHANGE, Change
+from tauledger.circuit import NO_CHANGE, Change, joined
 from tauledger.compose.review import compose
 from tauledger.compose.setting import unit_of
+from tauledger.devices.catalogue import linearise
 from tauledger.devices.family import Device
 from tauledger.engine.client import Engine, start_engine
 from tauledger.errors import InputError
 from tauledger.explain import Explanation, explain
-from tauledger.netlist import read
+from tauledger.netlist import elaborate, read
 from tauledger.network.assemble import Network
 from tauledger.numbers import Numbers, recompute, solve, solve_network
-from tauledger.record import Review
+from tauledger.record import DevicesTable, Review
 
 if TYPE_CHECKING:
     from tauledger.paper.page import Page
 
-__all__ = ["Numbers", "explain", "page_for", "recompute", "review", "review_network", "solve", "solve_network"]
+__all__ = [
+    "Numbers",
+    "devices",
+    "explain",
+    "page_for",
+    "recompute",
+    "review",
+    "review_network",
+    "solve",
+    "solve_network",
+]
 
 
 def review(
@@ -41,6 +53,8 @@ def review(
     timeout_s: float = 60.0,
     library: str | None = None,
     page: Page | None = None,
+    settings: Sequence[str] = (),
+    allow: Sequence[str | Path] = (),
 ) -> Review:
     """Review the netlist at `path`.
 
@@ -49,16 +63,60 @@ def review(
     drive: the one source to drive with 1, None for all with an AC value. output: "out", "v(a,b)" or "i(vload)", None
     for the netlist's own hints. midband_hz: reference frequency in Hz, None to find the plateau.
     page: the designer's own figures, of `paper.page.read_page`, to be set beside hand and exact.
+    settings: "R3=4.7k", "load=2k", "nsmall.bf=100": set beyond `change`, and the headline is told before and after.
+    allow: folders beside the netlist's own from which files may be included.
     Raises NetlistError, InputError, EngineError (EngineMissing, EngineTimeout).
     """
     if engine is None:
         with start_engine(library=library, timeout_s=timeout_s) as own:
-            return review(path, engine=own, drive=drive, output=output, midband_hz=midband_hz, change=change, page=page)
-    netlist = read(path)
+            return review(
+                path,
+                engine=own,
+                drive=drive,
+                output=output,
+                midband_hz=midband_hz,
+                change=change,
+                page=page,
+                settings=settings,
+                allow=allow,
+            )
+    netlist = read(path, allow=allow)
+    before: Review | None = None
+    if settings:
+        from tauledger.netlist.settings import change_of
+
+        asked = change_of(netlist, settings)
+        unset = solve(netlist, change, engine, drive=drive, output=output, midband_hz=midband_hz)
+        before = compose(unset, explain(unset), netlist=netlist)
+        change = joined(change, asked)
     numbers = solve(netlist, change, engine, drive=drive, output=output, midband_hz=midband_hz)
     explanation = explain(numbers)
     found = compose(numbers, explanation, netlist=netlist)
+    if before is not None:
+        from tauledger.compose.changed import moved_figures, set_values
+
+        found = replace(found, settings=set_values(asked), moved=moved_figures(before, found))
     return found if page is None else _with_page(found, page, numbers, explanation)
+
+
+def devices(
+    path: str | Path,
+    *,
+    engine: Engine,
+    drive: str | None = None,
+    output: str | None = None,
+    change: Change = NO_CHANGE,
+) -> DevicesTable:
+    """Give every transistor and diode of the netlist at `path` at its operating point; nothing is swept.
+
+    Raises NetlistError, InputError, EngineError (EngineMissing, EngineTimeout).
+    """
+    from tauledger.compose.devices import devices_table
+
+    netlist = read(path)
+    circuit = elaborate(netlist, change, drive=drive, output=output)
+    bias = engine.operating_point(circuit)
+    return devices_table(netlist, circuit, bias, linearise(circuit, bias))
 
 
 def review_network(

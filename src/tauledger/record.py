@@ -25,12 +25,16 @@ class EngineFacts(Struct, frozen=True):
 
 class NetlistFacts(Struct, frozen=True):
     """The netlist: path as typed, title, SHA-256 of all files read in order, and what was read past, by word and
-    count."""
+    count.
+
+    passed: the same card by card, "board.cir:12: .ac dec 10 1 1meg".
+    """
 
     path: str
     title: str
     sha256: str
     read_past: str = ""
+    passed: tuple[str, ...] = ()
 
 
 class DriveFacts(Struct, frozen=True):
@@ -423,6 +427,22 @@ class PaperFigure(Struct, frozen=True):
     says: str
 
 
+class SetValue(Struct, frozen=True):
+    """One value that was set from outside of the netlist: a parameter, an element, or a parameter of a model."""
+
+    name: str
+    value: float
+
+
+class MovedFigure(Struct, frozen=True):
+    """One figure of the headline as the netlist gives it and as it is with what was set; None where there is none."""
+
+    figure: str
+    unit: str
+    before: float | None
+    after: float | None
+
+
 class Review(Struct, frozen=True):
     """One review of one netlist under one condition."""
 
@@ -452,3 +472,20 @@ class Review(Struct, frozen=True):
     notes: tuple[NoteFacts, ...]
     cautions: tuple[str, ...] = ()
     paper: tuple[PaperFigure, ...] = ()
+    settings: tuple[SetValue, ...] = ()
+    moved: tuple[MovedFigure, ...] = ()
+
+
+DEVICES_SCHEMA = "tauledger.devices/1"
+
+
+class DevicesTable(Struct, frozen=True):
+    """Every transistor and diode at its operating point, and the notes that it calls for."""
+
+    schema: str
+    tauledger: str
+    engine: EngineFacts
+    netlist: NetlistFacts
+    temperature_c: float
+    devices: tuple[DeviceFacts, ...]
+    notes: tuple[NoteFacts, ...]

@@ -36,6 +36,10 @@ _EXIT_CODES = (
 @click.option("--color", type=click.Choice(_COLOR_CHOICES), default="auto", show_default=True, help="Colour the text.")
 @click.option("--paper", metavar="PAGE", help="Set your own figures in PAGE (TOML) beside hand and exact.")
 @click.option("--working", metavar="NODE", multiple=True, help="Work a signal node out, line by line; repeatable.")
+@click.option(
+    "--set", "settings", metavar="NAME=VALUE", multiple=True, help="Set a .param, element or model.parameter."
+)
+@click.option("--allow-include", "allow", metavar="DIR", multiple=True, help="Include files from DIR too; repeatable.")
 @click.option("--verbose", is_flag=True, help="Show every node, part, pole and zero, and the working.")
 def review_command(
     netlists: tuple[str, ...],
@@ -49,6 +53,8 @@ def review_command(
     color: str,
     paper: str | None,
     working: tuple[str, ...],
+    settings: tuple[str, ...],
+    allow: tuple[str, ...],
     verbose: bool,
 ) -> ExitCode:
     """Review the amplifier in NETLIST: does paper agree with the simulation, where not, and why?"""
@@ -72,7 +78,16 @@ def review_command(
         with start_engine(library=library, timeout_s=timeout) as engine:
             from tauledger.pipeline import review
 
-            return review(netlist, engine=engine, drive=drive, output=output, midband_hz=midband_hz, page=page)
+            return review(
+                netlist,
+                engine=engine,
+                drive=drive,
+                output=output,
+                midband_hz=midband_hz,
+                page=page,
+                settings=settings,
+                allow=allow,
+            )
 
     def show(found: Review) -> None:
         from tauledger.report.terminal import render

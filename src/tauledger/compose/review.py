@@ -11,7 +11,7 @@ from tauledger.compose.setting import cautions, curves, device_facts, drive_fact
 from tauledger.explain import Explanation
 from tauledger.hand.estimate import Edge as EdgeName
 from tauledger.hand.steps import factors
-from tauledger.netlist import Netlist, read_past
+from tauledger.netlist import Netlist, read_past, read_past_places
 from tauledger.network.edges import Edge
 from tauledger.network.midband import MidBand
 from tauledger.numbers import Numbers
@@ -94,7 +94,8 @@ def netlist_facts(netlist: Netlist | None, title: str) -> NetlistFacts:
     """Say which netlist it was; a network built from parts has a title alone."""
     if netlist is None:
         return NetlistFacts("", title, "")
-    return NetlistFacts(netlist.path, netlist.title, netlist.sha256, read_past(netlist))
+    passed = tuple(f"{where}: {what}" for where, what in read_past_places(netlist))
+    return NetlistFacts(netlist.path, netlist.title, netlist.sha256, read_past(netlist), passed)
 
 
 def _midband_facts(midband: MidBand, unit: str, *, chosen: bool) -> MidbandFacts:

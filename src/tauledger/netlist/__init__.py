@@ -7,8 +7,19 @@ made in diagnostics. Only reader touches files; no text of a netlist leaves this
 """
 
 from tauledger.netlist.elaborate import elaborate, instance_context
-from tauledger.netlist.hints import Hints, ac_range, hints, read_past
+from tauledger.netlist.hints import Hints, ac_range, hints, read_past, read_past_places
 from tauledger.netlist.netlist import Netlist, place
 from tauledger.netlist.reader import read
 
-__all__ = ["Hints", "Netlist", "ac_range", "elaborate", "hints", "instance_context", "place", "read", "read_past"]
+__all__ = [
+    "Hints",
+    "Netlist",
+    "ac_range",
+    "elaborate",
+    "hints",
+    "instance_context",
+    "place",
+    "read",
+    "read_past",
+    "read_past_places",
+]

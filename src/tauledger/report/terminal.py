@@ -9,7 +9,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from tauledger.record import NodeRow, Review
-from tauledger.report import lower, paper, poles, reasons, steps, summary, upper
+from tauledger.report import changed, lower, paper, poles, reasons, steps, summary, upper
 from tauledger.report.layout import CAUTION, HEADING, STRONG, WARNING, Line, Section, lay_out
 from tauledger.report.working import workings
 
@@ -36,6 +36,7 @@ def render(
         reasons.warning(review),
         summary.headline(review),
         summary.band(review),
+        changed.changed(review),
         summary.operating_points(review, verbose=verbose),
         paper.own_page(review),
         reasons.causes(review, verbose=verbose),
@@ -48,6 +49,7 @@ def render(
         steps.methods_table(review, "f_low") if verbose else Section(()),
         poles.poles_and_zeros(review, verbose=verbose),
         *(workings(review, [node]) for node in working if not verbose),
+        changed.read_past(review) if verbose else Section(()),
         reasons.closing(review),
     )
     lines = lay_out(sections, width=width, unicode=unicode, page=_PAGE)

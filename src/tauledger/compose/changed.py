@@ -1,0 +1,45 @@
+"""What a change does to the headline: every figure before and after, from two reviews of one netlist."""
+
+from __future__ import annotations
+
+from tauledger.circuit import Change
+from tauledger.record import EdgeFacts, MovedFigure, Review, SetValue
+
+
+def set_values(change: Change) -> tuple[SetValue, ...]:
+    """List what a change sets: parameters, elements, parameters of models."""
+    named = [*change.parameters, *change.elements]
+    named += [(f"{model}.{parameter}", value) for model, parameter, value in change.models]
+    return tuple(SetValue(name, value) for name, value in named)
+
+
+def moved_figures(before: Review, after: Review) -> tuple[MovedFigure, ...]:
+    """Set the figures of the headline side by side, mid-band and both edges; what neither has is left out."""
+    rows = [
+        MovedFigure("gain", "dB", before.midband.gain_db, after.midband.gain_db),
+        MovedFigure("plateau from", "Hz", before.midband.from_hz, after.midband.from_hz),
+        MovedFigure("plateau to", "Hz", before.midband.to_hz, after.midband.to_hz),
+    ]
+    for name, old, new in (("f_L", before.f_low, after.f_low), ("f_H", before.f_high, after.f_high)):
+        rows += _edge(name, old, new)
+    return tuple(row for row in rows if row.before is not None or row.after is not None)
+
+
+def _edge(name: str, old: EdgeFacts | None, new: EdgeFacts | None) -> list[MovedFigure]:
+    figures = (
+        ("simulated", "Hz", "simulated_hz"),
+        ("exact", "Hz", "exact_hz"),
+        ("by hand", "Hz", "hand_hz"),
+        ("phase shift", "deg", "phase_deg"),
+        ("peak", "dB", "peaking_db"),
+        ("rise time", "s", "rise_time_s"),
+    )
+    return [
+        MovedFigure(
+            f"{name} {words}",
+            unit,
+            None if old is None else getattr(old, field),
+            None if new is None else getattr(new, field),
+        )
+        for words, unit, field in figures
+    ]

@@ -1,0 +1,68 @@
+"""NAME=VALUE as a user writes it → the Change: a parameter, an element, or a parameter of a model."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+
+from tauledger.circuit import Change, fold
+from tauledger.errors import InputError
+from tauledger.netlist.diagnostics import nearest, visible
+from tauledger.netlist.elaborate import elaborated
+from tauledger.netlist.netlist import Netlist
+from tauledger.netlist.numbers import read_number
+from tauledger.netlist.writer import element_names
+
+
+def change_of(netlist: Netlist, settings: Sequence[str]) -> Change:
+    """Give the change that "load=2k", "R3=4.7k", "X1.R1=10" or "nsmall.bf=100" ask for, values as in a netlist.
+
+    Raises InputError where one is not NAME=VALUE, where nothing is called so (with the nearest name), and where a name
+    is set twice or means two things.
+    """
+    understood = elaborated(netlist, purpose="reading")
+    circuit = understood.circuit
+    elements = {fold(name): name for name in circuit.passives.name}
+    elements |= {fold(element.name): element.name for element in circuit.elements}
+    elements |= {fold(card): elements[flat] for flat, card in element_names(circuit).items()}
+    parameters = {key: binding.setting.name.text for key, binding in understood.scopes[0].bindings.items()}
+    models = {fold(model.name): model.name for model in circuit.models}
+    found: dict[tuple[str, ...], float] = {}
+    for setting in settings:
+        name, value = _parted(setting)
+        key = fold(name)
+        model, _, parameter = key.rpartition(".")
+        meanings: list[tuple[str, ...]] = []
+        if key in parameters:
+            meanings.append(("parameter", parameters[key]))
+        if key in elements:
+            meanings.append(("element", elements[key]))
+        if model in models:
+            meanings.append(("model", models[model], parameter))
+        if not meanings:
+            known = [*parameters.values(), *elements.values(), *(f"{name}.{parameter}" for name in models.values())]
+            raise InputError(
+                f"--set {visible(setting)}: nothing is called {visible(name)!r}",
+                nearest(name, known, otherwise="give a .param, an element, or model.parameter"),
+            )
+        if len(meanings) > 1:
+            words = " and ".join(f"a{'n' if kind == 'element' else ''} {kind}" for kind, *_ in meanings)
+            raise InputError(
+                f"--set {visible(setting)}: {visible(name)} is {words} of the netlist", "rename one of them"
+            )
+        if meanings[0] in found:
+            raise InputError(f"--set {visible(setting)}: {visible(name)} is set twice")
+        found[meanings[0]] = value
+    return Change(
+        parameters=tuple((name[1], value) for name, value in found.items() if name[0] == "parameter"),
+        elements=tuple((name[1], value) for name, value in found.items() if name[0] == "element"),
+        models=tuple((name[1], name[2], value) for name, value in found.items() if name[0] == "model"),
+    )
+
+
+def _parted(setting: str) -> tuple[str, float]:
+    name, equals, text = setting.partition("=")
+    number = read_number(text.strip())
+    if not name.strip() or not equals or number is None or number.tail or not math.isfinite(number.value):
+        raise InputError(f"--set {visible(setting)}: not NAME=VALUE", "write the value as in a netlist: --set R3=4.7k")
+    return name.strip(), number.value

@@ -1,0 +1,61 @@
+"""What was set from outside of the netlist with the headline before and after, and what of it was read past."""
+
+from __future__ import annotations
+
+from tauledger.record import MovedFigure, Review
+from tauledger.report.layout import HEADING, Block, Prose, Row, Section, Table
+from tauledger.report.wording import NO_NUMBER, move, number
+
+# Less than this is below what ngspice and the network agree to.
+_STANDS_STILL = 1e-7
+
+
+def changed(review: Review) -> Section:
+    """Give the figures that move, before and after; empty where nothing was set."""
+    if not review.settings:
+        return Section(())
+    told = ", ".join(f"{setting.name} = {setting.value:.6g}" for setting in review.settings)
+    moved = [figure for figure in review.moved if not _same(figure)]
+    still = [figure.figure for figure in review.moved if _same(figure)]
+    rows = tuple(
+        Row((figure.figure, _shown(figure, figure.before), _shown(figure, figure.after), _by(figure)))
+        for figure in moved
+    )
+    blocks: list[Block] = [Prose(f"SET {told}", style=HEADING)]
+    if rows:
+        blocks.append(Table("lrrr", ("figure", "as in the netlist", "as set", "change"), rows))
+    if still:
+        blocks.append(Prose(", ".join(still), lead="  unchanged: "))
+    return Section(tuple(blocks))
+
+
+def read_past(review: Review) -> Section:
+    """List what was read past, card by card; empty where nothing was."""
+    if not review.netlist.passed:
+        return Section(())
+    lines = tuple(Prose(passed, lead="  ") for passed in review.netlist.passed)
+    return Section((Prose("READ PAST", style=HEADING), *lines))
+
+
+def _same(figure: MovedFigure) -> bool:
+    if figure.before is None or figure.after is None:
+        return figure.before is figure.after
+    return abs(figure.after - figure.before) <= _STANDS_STILL * max(abs(figure.before), abs(figure.after))
+
+
+def _shown(figure: MovedFigure, value: float | None) -> str:
+    if value is None:
+        return NO_NUMBER
+    if figure.unit == "dB":
+        return f"{value:.2f} dB"
+    return f"{value:+.1f}°" if figure.unit == "deg" else number(value, figure.unit)
+
+
+def _by(figure: MovedFigure) -> str:
+    """Word the change: in dB and degrees as a difference, else in per cent."""
+    if figure.before is None or figure.after is None:
+        return NO_NUMBER
+    if figure.unit in ("dB", "deg"):
+        sign = f"{figure.after - figure.before:+.2f}"
+        return f"{sign} dB" if figure.unit == "dB" else f"{figure.after - figure.before:+.1f}°"
+    return move(figure.after / figure.before - 1.0) if figure.before else NO_NUMBER
