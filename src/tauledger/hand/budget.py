@@ -132,7 +132,8 @@ def _row(circuit: EquivalentCircuit, group: Group, passage: Passage) -> SignalNo
         lines=tuple(carrying),
         resistance_hand_ohm=first.resistance.ohm,
         resistance_exact_ohm=first.resistance_exact_ohm,
-        capacitance_f=tau / first.resistance.ohm,
+        # a node that a controlled voltage source holds has no resistance and no time constant
+        capacitance_f=tau / first.resistance.ohm if first.resistance.ohm else first.capacitance_f,
         time_constant_s=tau,
         time_constant_exact_s=float(sum(circuit.constant[circuit.row[node]] for node in group.nodes)),
     )
