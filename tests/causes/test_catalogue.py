@@ -16,9 +16,10 @@ ALL = [*boards.UPPER, *boards.LOWER, boards.emitter_follower, boards.gain_of_two
 @pytest.mark.parametrize("board", ALL, ids=lambda board: board.__name__)
 def test_causes_are_worth_telling_and_the_largest_comes_first(board: boards.Board) -> None:
     found = find_causes(evidence(board()))
-    effects = [abs(cause.effect) for cause in found]
-    assert effects == sorted(effects, reverse=True)
-    assert all(effect >= WORTH_TELLING for effect in effects)
+    for on_paper in (False, True):
+        effects = [abs(cause.effect) for cause in found if cause.on_paper == on_paper]
+        assert effects == sorted(effects, reverse=True)
+    assert all(abs(cause.effect) >= WORTH_TELLING for cause in found)
     for cause in found:
         assert cause.says
         assert cause.instead

@@ -17,6 +17,7 @@ from tauledger.network.bands import Bands
 from tauledger.network.solve import Complex
 from tauledger.quantity import engineering
 
+DIFFERS = 0.02
 GREEK = {"pi": "π", "mu": "μ"}
 
 
@@ -64,6 +65,14 @@ def move(edge: EdgeEvidence, later: str, earlier: str) -> float | None:
     hz = {step.step: step.hz for step in edge.steps}
     after, before = hz.get(later), hz.get(earlier)
     return after / before - 1.0 if after is not None and before is not None else None
+
+
+def hand_differs(evidence: Evidence) -> bool:
+    """Say whether the lowest node alone and the exact f_H differ by more than 2 %: else there is nothing to explain."""
+    hz, combined = evidence.upper.hz, evidence.upper.combined
+    if hz is None or combined is None or combined.lowest is None:
+        return False
+    return abs(combined.lowest / hz - 1.0) > DIFFERS
 
 
 def interaction_step(edge: EdgeEvidence) -> str:

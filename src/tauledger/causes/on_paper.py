@@ -12,7 +12,7 @@ from collections.abc import Sequence
 import numpy as np
 
 from tauledger.causes.cause import Cause
-from tauledger.causes.evidence import Evidence
+from tauledger.causes.evidence import Evidence, hand_differs
 from tauledger.circuit import GROUND
 from tauledger.devices.parts import Part
 from tauledger.network.assemble import Network
@@ -22,7 +22,6 @@ from tauledger.quantity import engineering, percent
 from tauledger.record import NamedNumber
 
 SHORTED = 1e7
-DIFFERS = 0.02
 AT_BASE = "g_b"
 REACH = 32.0
 POINTS = 48
@@ -70,10 +69,8 @@ def degeneration_ignored(evidence: Evidence) -> Cause | None:
 
 def _without(evidence: Evidence, parts: Sequence[Part]) -> float | None:
     """Give f_H with the parts shorted ÷ f_H − 1; None where hand and exact agree within 2 %, or there is no f_H."""
-    hz, combined = evidence.upper.hz, evidence.upper.combined
-    if not parts or hz is None or combined is None or combined.lowest is None:
-        return None
-    if abs(combined.lowest / hz - 1.0) <= DIFFERS:
+    hz = evidence.upper.hz
+    if not parts or hz is None or not hand_differs(evidence):
         return None
     bands = evidence.bands
     changed = scaled(bands.network, {part.name: SHORTED for part in parts})

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+
 from tauledger.record import CauseFacts, Review
 from tauledger.report.layout import CAUTION, HEADING, WARNING, Block, Prose, Section
 from tauledger.report.wording import AGREEMENT_WARNS, EDGE, move, network_rejected, number, retitled, withheld
@@ -27,15 +29,17 @@ def causes(review: Review, *, verbose: bool = False) -> Section:
     """List the causes, largest first, with their effect and what to do instead."""
     if withheld(review):
         return Section((Prose(withheld(review), style=CAUTION),))
-    shown = review.causes if verbose else review.causes[:_CAUSES]
-    largest = f", {len(shown)} largest of {len(review.causes)} causes" if len(shown) < len(review.causes) else ""
+    differ = [cause for cause in review.causes if not cause.on_paper]
+    shown = differ if verbose else differ[:_CAUSES]
+    largest = f", {len(shown)} largest of {len(differ)} causes" if len(shown) < len(differ) else ""
     blocks: list[Block] = [Prose(f"WHY PAPER AND SIMULATION DIFFER{largest}", style=HEADING)]
-    leads = [_effect(cause) for cause in shown]
-    size = max(map(len, leads), default=0)
-    for cause, lead in zip(shown, leads, strict=True):
-        blocks.append(Prose(retitled(_cause(cause), review.parts), lead=f"  {lead:<{size}}  ", hang=4))
-    if not review.causes:
+    blocks.extend(_told(shown, review))
+    if not differ:
         blocks.append(Prose("nothing of note above 2 %", lead="  "))
+    on_paper = [cause for cause in review.causes if cause.on_paper]
+    if verbose and on_paper:
+        blocks.append(Prose("WHAT PAPER MUST NOT LEAVE OUT (the hand figures here have it)", style=HEADING))
+        blocks.extend(_told(on_paper, review))
     return Section(tuple(blocks), major=True)
 
 
@@ -55,6 +59,15 @@ def closing(review: Review) -> Section:
     blocks.append(Prose("This is an estimate; it does not replace measuring the board."))
     blocks.extend(Prose(caution, lead="CAUTION: ", style=CAUTION) for caution in review.cautions)
     return Section(tuple(blocks))
+
+
+def _told(causes: Sequence[CauseFacts], review: Review) -> list[Prose]:
+    leads = [_effect(cause) for cause in causes]
+    size = max(map(len, leads), default=0)
+    return [
+        Prose(retitled(_cause(cause), review.parts), lead=f"  {lead:<{size}}  ", hang=4)
+        for cause, lead in zip(causes, leads, strict=True)
+    ]
 
 
 def _effect(cause: CauseFacts) -> str:
