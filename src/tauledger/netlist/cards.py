@@ -41,6 +41,10 @@ _PIECE = re.compile(r"""'[^']*'|"[^"]*"|\{[^{}]*\}|[()]|(?<![\w.])([A-Za-z]+\w*)
 _BEHIND = re.compile(r"""'[^']*'|"[^"]*"|\{[^{}]*\}|[()]|\s(?:tc1|tc2|m|temp|dtemp|ic)\s*=(?!=)""", re.IGNORECASE)
 
 
+_WIDE = re.compile(r"""[^\s(),='"{]++(?:\s++[^\s(),='"{]++(?:=[^\s(),='"{]++)?)*+""")
+_WIDE_ITEM = re.compile(r"([^\s=]+)(?:=(\S+))?")
+
+
 class _Region(NamedTuple):
     """A behavioural expression on a card: its keyword, where that begins, where the expression begins and ends."""
 
@@ -70,7 +74,9 @@ def parse_element(site: Site) -> tuple[Item, ...]:
 
 
 def _region(text: str, letter: str) -> _Region | None:
-    sure = _BEHAVIOURAL.get(letter, "").split("|")
+    if letter not in _BEHAVIOURAL:
+        return None
+    sure = _BEHAVIOURAL[letter].split("|")
     depth = 0
     for piece in _PIECE.finditer(text):
         keyword = piece.group(1)
@@ -116,9 +122,30 @@ def parse_card(site: Site, text: str | None = None) -> tuple[Item, ...]:
     text: to be read instead of the card's, character for character at the same place.
     Raises NetlistError at the character where the card stops making sense.
     """
+    text = site.card.text if text is None else text
+    wide = wide_items(text)
+    return grammar_items(site, text) if wide is None else wide
+
+
+def wide_items(text: str) -> tuple[Item, ...] | None:
+    """Give the items of a card that has only plain words and name=word, as the grammar would; None for any other card.
+
+    Nearly all cards of large netlists are such, and this is some twenty times faster.
+    """
+    if _WIDE.fullmatch(text) is None:
+        return None
+    items: list[Item] = []
+    for piece in _WIDE_ITEM.finditer(text):
+        word = Word(piece.group(1), piece.start())
+        value = piece.group(2)
+        items.append(word if value is None else Setting(word, Word(value, piece.start(2))))
+    return tuple(items)
+
+
+def grammar_items(site: Site, text: str) -> tuple[Item, ...]:
+    """Give the items of any card by the grammar; raises NetlistError where it stops making sense."""
     from lark import Token, UnexpectedCharacters, UnexpectedToken
 
-    text = site.card.text if text is None else text
     deep = _depth(text)
     if deep is not None:
         raise site.fault(deep, f"parentheses are nested more than {MOST_NESTED} deep")
