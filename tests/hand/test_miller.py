@@ -207,3 +207,18 @@ def test_no_gain_is_infinite_where_a_stage_has_no_load_of_its_own() -> None:
         output="d",
     )
     assert math.isclose(hand_gain(circuit, "g", "d").value, -2.0, rel_tol=1e-9)
+
+
+def test_the_base_of_a_follower_inside_a_loop_keeps_one_minus_k() -> None:
+    """Driven from its emitter the loop gives −10 at the base, but the base's own K is 0.97: C·0.03, never C·1.1."""
+    bands, devices = board(
+        resistance("RS", "s", "b", 100e3),
+        bipolar("Q1", ("c", "b", "0"), c_mu=0.1e-12),
+        resistance("RC", "c", "0", 1.5e3),
+        bipolar("Q2", ("0", "c", "out"), c_pi=1e-12),
+        resistance("RE", "out", "0", 1e3),
+        resistance("RF", "out", "b", 10e3),
+    )
+    miller = term(row((bands, devices), "c"), "Q2.c_pi")
+    assert miller.exact_factor < 0.1
+    assert miller.factor == near(miller.exact_factor, rel=0.02)

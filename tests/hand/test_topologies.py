@@ -174,3 +174,21 @@ def test_a_second_way_into_a_node_is_named_as_the_reason() -> None:
 def test_a_bias_resistor_that_follows_is_said_to_be_bootstrapped() -> None:
     assert "RB (bootstrapped)" in stages("bootstrapped bias")[0].elements
     assert not any("bootstrapped" in name for name in stages("common collector")[0].elements)
+
+
+def test_a_transistors_own_emitter_resistance_is_no_degeneration() -> None:
+    """r_e of 2 ohm and gm of 40 mS: the inner emitter moves by 8 %, the netlist's emitter is at ground."""
+    made = board(SOURCE, bipolar("Q1", ("out", "b", "0"), r_e=2.0), LOAD)
+    assert stage_rows(*made)[-1].role == "common emitter"
+    made = board(SOURCE, bipolar("Q1", ("out", "b", "e"), r_e=2.0), r("RE", "e", "0", 2.0), LOAD)
+    assert stage_rows(*made)[-1].role == "common emitter, degenerated"
+
+
+def test_bootstrapping_is_seen_through_the_emitters_own_resistance() -> None:
+    made = board(SOURCE, bipolar("Q1", ("0", "b", "out"), r_b=100.0, r_e=1.0), r("RB", "b", "out", 100e3), LOAD)
+    assert "RB (bootstrapped)" in stage_rows(*made)[0].elements
+
+
+def test_series_resistances_of_a_device_are_listed_as_the_device() -> None:
+    made = board(SOURCE, bipolar("Q1", ("out", "b", "0"), r_b=100.0, r_c=3.0), LOAD)
+    assert stage_rows(*made)[-1].elements == ("RL", "Q1")

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Sequence
 
 from tauledger.circuit import GROUND
@@ -10,6 +11,7 @@ from tauledger.hand.equivalent import EquivalentCircuit
 from tauledger.hand.roles import leaves_at, role_of
 
 COUPLED = {"base": "emitter-coupled pair", "gate": "source-coupled pair", "input": "pair with one common terminal"}
+SERIES = re.compile(r"r_[a-z]+\((\w+)\)")
 FOLLOWER = "follower"
 FOLLOWS = 0.5
 
@@ -50,7 +52,7 @@ def bootstrapped(circuit: EquivalentCircuit, node: str, far: str) -> bool:
     """Say whether a transistor makes the far end of a resistor follow the node by more than half: it carries less."""
     if far == GROUND or not FOLLOWS < circuit.gain(node, far) < 1.0:
         return False
-    following = [cell for cell in circuit.cells if leaves_at(circuit, cell) == far]
+    following = [cell for cell in circuit.cells if _outer(circuit, leaves_at(circuit, cell) or GROUND) == far]
     return any(_outer(circuit, cell.control) == node for cell in following)
 
 
@@ -99,6 +101,12 @@ def _tail(circuit: EquivalentCircuit, cell: Cell) -> str:
             return node
         node = circuit.resistors[resistors[0]].other(node)
     return node
+
+
+def device_of(name: str) -> str:
+    """Give the device that a series resistance belongs to: "r_c(Q1)" → "Q1"; other names as they are."""
+    inner = SERIES.fullmatch(name)
+    return inner.group(1) if inner else name
 
 
 def _outer(circuit: EquivalentCircuit, node: str) -> str:

@@ -29,6 +29,8 @@ ACCEPTED = 0.01
 LONGEST_CHAIN = 4
 NOT_PRINTED = 0.001
 TEXTBOOK_BELOW = -1.0
+# 1 + 1/|A| takes the driven end as standing still; where it follows its far end, 1 − K is another number altogether.
+STANDS_STILL = 0.5
 
 
 class HandGain(Struct, frozen=True):
@@ -78,7 +80,7 @@ def miller_term(circuit: EquivalentCircuit, capacitor: Capacitor, node: str) -> 
         return MillerTerm(capacitor.part, capacitor.farad, 1.0, 0j)
     exact = 1.0 - circuit.gain(node, far)
     back = hand_gain(circuit, far, node)
-    if back.value <= TEXTBOOK_BELOW and back.value < here.value:
+    if back.value <= TEXTBOOK_BELOW and abs(here.value) <= STANDS_STILL:
         a = -back.value
         text = f"1 + 1/|A| = 1 + 1/{plain(a)} = {plain(1.0 + 1.0 / a)}"
         return MillerTerm(capacitor.part, capacitor.farad, 1.0 + 1.0 / a, complex(-1.0 / a), text, back.source, exact)

@@ -24,7 +24,7 @@ def role_of(circuit: EquivalentCircuit, cell: Cell) -> str:
     Diode-connected where control and output are one node. Without signal where gm·(v_control − v_common) moves the
     output by less than 0.1 %. The signal enters by the control or the common node, whichever moves more, and leaves by
     the output or the common node, whichever the circuit's output follows more. Degenerated: the common node, entered by
-    the control, moves by more than 5 % of it.
+    the control, moves by more than 5 % of it, and by more than its own series resistance does it.
     """
     if _diode_node(circuit, cell) is not None:
         return "diode-connected"
@@ -40,7 +40,8 @@ def role_of(circuit: EquivalentCircuit, cell: Cell) -> str:
     driver = _control_node(circuit, cell)
     if driver != GROUND and driver in {_diode_node(circuit, other) for other in circuit.cells if other is not cell}:
         return "current mirror output"
-    return degenerated if abs(v_common) > FOLLOWS * abs(v_control) else shared
+    grounded = any(t.inner == cell.common != t.outer == GROUND for t in circuit.terminals)
+    return degenerated if abs(v_common) > FOLLOWS * abs(v_control) and not grounded else shared
 
 
 def follower_of(cell: Cell) -> str:

@@ -9,7 +9,7 @@ import numpy as np
 
 from tauledger.circuit import GROUND
 from tauledger.devices.family import Device
-from tauledger.hand.arrangements import arrangement, bootstrapped, follows_as_one
+from tauledger.hand.arrangements import arrangement, bootstrapped, device_of, follows_as_one
 from tauledger.hand.elements import Cell
 from tauledger.hand.equivalent import EquivalentCircuit, upper_circuit
 from tauledger.hand.estimate import StageRow
@@ -144,7 +144,7 @@ def _why(circuit: EquivalentCircuit, before: str | None, node: str, hand: float 
     name = max(carried, key=lambda one: carried[one], default="")
     if not name or not carried[name]:
         return "the gain was solved: no chain of hand gains fits"
-    return f"{name} brings signal to {node_name(circuit, node)} as well, past {node_name(circuit, before)}"
+    return f"{device_of(name)} brings signal to {node_name(circuit, node)} as well, past {node_name(circuit, before)}"
 
 
 def _source_cell(circuit: EquivalentCircuit, group: Group, before: str | None) -> Cell | None:
@@ -164,7 +164,7 @@ def _elements(circuit: EquivalentCircuit, node: str) -> tuple[str, ...]:
     least = PART_OF_A_STAGE / circuit.z(node, node)
     resistors = [circuit.resistors[k] for k in circuit.resistors_at.get(node, ())]
     named = [
-        f"{r.name} (bootstrapped)" if bootstrapped(circuit, node, r.other(node)) else r.name
+        f"{r.name} (bootstrapped)" if bootstrapped(circuit, node, r.other(node)) else device_of(r.name)
         for r in resistors
         if 1.0 / r.ohm >= least
     ]
