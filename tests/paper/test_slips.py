@@ -181,6 +181,34 @@ def test_an_edge_that_a_classical_method_gives_is_no_slip() -> None:
     assert found.off == near(689.28e3 / 643.13e3 - 1, rel=0.01)
 
 
+def balanced() -> Circuit:
+    """A differential pair with 47 ohm in each emitter, 5.6k in each collector and 20k between the collectors."""
+    sides = []
+    for side in ("p", "n"):
+        sides += [
+            voltage_source(f"V{side}", f"s{side}", "0", 0.5 if side == "p" else -0.5),
+            resistance(f"RS{side}", f"s{side}", f"b{side}", 300.0),
+            resistance(f"RC{side}", side, "0", 5.6e3),
+            resistance(f"RE{side}", f"e{side}", "t", 47.0),
+            capacitance(f"CL{side}", side, "0", 12e-12),
+        ]
+    devices = tuple(
+        bipolar(f"Q{side}", (side, f"b{side}", f"e{side}"), gm=0.0385, r_o=1e9, c_pi=28e-12, c_mu=1.6e-12)
+        for side in ("p", "n")
+    )
+    parts = [*sides, resistance("RT", "t", "0", 5.6e3), resistance("RX", "p", "n", 20e3)]
+    parts += [part for device in devices for part in device.parts]
+    return Network.from_parts(parts, output=Port("p", "n")), devices
+
+
+def test_a_half_circuit_that_was_none_is_told() -> None:
+    """R_C ‖ R_X/2 is right; with the other collector at rest paper has R_C ‖ (R_X + R_C)."""
+    assert told(balanced(), f"[node.p]\nresistance = {parallel(5.6e3, 10e3)!r}\n").says == "agrees within 2 %"
+    found = told(balanced(), f"[node.n]\nresistance = {parallel(5.6e3, 25.6e3)!r}\n")
+    assert found.slip == "half-circuit-ignored"
+    assert told(balanced(), f"[node.p]\nresistance = {1.05 * parallel(5.6e3, 25.6e3)!r}\n").slip == ""
+
+
 RIGHT = {
     "[node.b]\nresistance = ": parallel(R_B + R_SOURCE, R_PI),
     "[node.b]\ncapacitance = ": C_IN,

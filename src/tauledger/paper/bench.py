@@ -73,10 +73,13 @@ def miller_factor(split: Split) -> float:
     return 1.0 - split.gain
 
 
-def work(bands: Bands, hand: HandEstimate, edit: Edit, factor: Factor = miller_factor) -> Worked | None:
+def work(
+    bands: Bands, hand: HandEstimate, edit: Edit, factor: Factor = miller_factor, *, halves: bool = True
+) -> Worked | None:
     """Work the circuit with the values of some parts multiplied and Miller's factors by `factor`.
 
-    edit: factor by part name; 0 takes a conductance or capacitance out. None where the changed network has no solution.
+    edit: factor by part name; 0 takes a conductance or capacitance out. halves: False drives one node of a balanced
+    circuit alone. None where the changed network has no solution.
     """
     changed = replace(
         bands,
@@ -91,7 +94,7 @@ def work(bands: Bands, hand: HandEstimate, edit: Edit, factor: Factor = miller_f
     except (np.linalg.LinAlgError, NetworkError):
         return None
     gain = float((upper.output @ z @ upper.drive).real)
-    opposite = images(hand.nodes)
+    opposite = images(hand.nodes) if halves else {}
     farad = {part.name: part.value for part in changed.network.parts}
     nodes = {row.name: _node(row, changed, z, gain, opposite, farad, factor) for row in hand.nodes}
     edges = _upper_edges([nodes[row.name].time_constant for row in counted(hand.nodes).rows])

@@ -234,6 +234,10 @@ def _worked(subject: Subject) -> dict[tuple[str, str], Worked]:
         worked = work(subject.bands, subject.hand, slip.edit, slip.factor)
         if worked is not None:
             found[slip.id, slip.says] = worked
+    if any(row.image for row in subject.hand.nodes):
+        alone = work(subject.bands, subject.hand, {}, halves=False)
+        if alone is not None:
+            found["half-circuit-ignored", "one half driven alone, not both in opposite phase,"] = alone
     return found
 
 
