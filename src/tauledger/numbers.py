@@ -6,7 +6,7 @@ with parts of other value, which is what "rerun" and "10 % less" mean.
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 
 import numpy as np
 from msgspec import Struct
@@ -70,16 +70,22 @@ def solve(
     drive: str | None = None,
     output: str | None = None,
     midband_hz: float | None = None,
+    fold: Sequence[str] = (),
 ) -> Numbers:
     """Give the numbers of a netlist under one change: operating point, rebuilt network, exact and simulated edges.
 
     drive: the one source to drive with 1, None for all with an AC value. output: as on the command line, None for the
-    netlist's own hints. midband_hz: reference frequency in Hz, None to find the plateau.
+    netlist's own hints. midband_hz: reference frequency in Hz, None to find the plateau. fold: subcircuit instances to
+    be taken as one part each; macromodels are without being named, "none" alone leaves all open.
     Raises NetlistError or InputError where the circuit cannot be built, EngineError where ngspice gives no result.
     """
     circuit = _per_unit(elaborate(netlist, change, drive=drive, output=output))
     bias = engine.operating_point(circuit)
     linearised = linearise(circuit, bias)
+    if len(circuit.instances) > 1:
+        from tauledger.network.folding import fold_instances
+
+        linearised = fold_instances(circuit, linearised, fold)
     network = Network.from_parts(linearised.parts, output=circuit.output)
     numbers = solve_network(network, devices=linearised.devices, midband_hz=midband_hz)
     grid = _sweep_grid(numbers, ac_range(netlist))

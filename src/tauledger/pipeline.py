@@ -55,6 +55,7 @@ def review(
     page: Page | None = None,
     settings: Sequence[str] = (),
     allow: Sequence[str | Path] = (),
+    fold: Sequence[str] = (),
 ) -> Review:
     """Review the netlist at `path`.
 
@@ -65,6 +66,7 @@ def review(
     page: the designer's own figures, of `paper.page.read_page`, to be set beside hand and exact.
     settings: "R3=4.7k", "load=2k", "nsmall.bf=100": set beyond `change`, and the headline is told before and after.
     allow: folders beside the netlist's own from which files may be included.
+    fold: subcircuit instances to be taken as one part each, beside macromodels; "none": leave all open.
     Raises NetlistError, InputError, EngineError (EngineMissing, EngineTimeout).
     """
     if engine is None:
@@ -79,6 +81,7 @@ def review(
                 page=page,
                 settings=settings,
                 allow=allow,
+                fold=fold,
             )
     netlist = read(path, allow=allow)
     before: Review | None = None
@@ -86,10 +89,10 @@ def review(
         from tauledger.netlist.settings import change_of
 
         asked = change_of(netlist, settings)
-        unset = solve(netlist, change, engine, drive=drive, output=output, midband_hz=midband_hz)
+        unset = solve(netlist, change, engine, drive=drive, output=output, midband_hz=midband_hz, fold=fold)
         before = compose(unset, explain(unset), netlist=netlist)
         change = joined(change, asked)
-    numbers = solve(netlist, change, engine, drive=drive, output=output, midband_hz=midband_hz)
+    numbers = solve(netlist, change, engine, drive=drive, output=output, midband_hz=midband_hz, fold=fold)
     explanation = explain(numbers)
     found = compose(numbers, explanation, netlist=netlist)
     if before is not None:

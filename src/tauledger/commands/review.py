@@ -40,6 +40,7 @@ _EXIT_CODES = (
     "--set", "settings", metavar="NAME=VALUE", multiple=True, help="Set a .param, element or model.parameter."
 )
 @click.option("--allow-include", "allow", metavar="DIR", multiple=True, help="Include files from DIR too; repeatable.")
+@click.option("--fold", metavar="INSTANCE", multiple=True, help="Show a subcircuit instance as one part; none: no one.")
 @click.option("--verbose", is_flag=True, help="Show every node, part, pole and zero, and the working.")
 def review_command(
     netlists: tuple[str, ...],
@@ -55,6 +56,7 @@ def review_command(
     working: tuple[str, ...],
     settings: tuple[str, ...],
     allow: tuple[str, ...],
+    fold: tuple[str, ...],
     verbose: bool,
 ) -> ExitCode:
     """Review the amplifier in NETLIST: does paper agree with the simulation, where not, and why?"""
@@ -87,6 +89,7 @@ def review_command(
                 page=page,
                 settings=settings,
                 allow=allow,
+                fold=fold,
             )
 
     def show(found: Review) -> None:

@@ -19,9 +19,9 @@ from tauledger.hand.figures import plain
 from tauledger.hand.looking_in import looking_in
 from tauledger.hand.miller import hand_gain, miller_term
 from tauledger.hand.mirror import find_mirror, half_circuit
-from tauledger.hand.nodes import Group, Passage, groups, node_name, passages
+from tauledger.hand.nodes import Group, Passage, block_of, groups, node_name, passages
 from tauledger.network.bands import Bands
-from tauledger.quantity import percent
+from tauledger.quantity import engineering, percent
 
 ACCEPTED = 0.01
 NOT_WORTH_A_FACTOR = 1e-3
@@ -116,7 +116,7 @@ def resistance_across(circuit: EquivalentCircuit, a: str, b: str) -> LookingIn:
 
 def _row(circuit: EquivalentCircuit, group: Group, passage: Passage) -> SignalNode:
     lines = [_node_line(circuit, node) for node in group.nodes]
-    carrying = [line for line in lines if line.capacitances] or lines[:1]
+    carrying = [line for line in lines if line.capacitances or block_of(line.at)] or lines[:1]
     carrying.sort(key=lambda line: -abs(line.time_constant_s))
     first = carrying[0]
     tau = sum(line.time_constant_s for line in lines)
@@ -141,6 +141,8 @@ def _row(circuit: EquivalentCircuit, group: Group, passage: Passage) -> SignalNo
 
 def _node_line(circuit: EquivalentCircuit, node: str) -> InnerLine:
     name = node_name(circuit, node)
+    if block_of(node):
+        return _inside(circuit, node)
     resistance = looking_in(circuit, node, name)
     terms = tuple(miller_term(circuit, capacitor, node) for capacitor in circuit.capacitors if _at(capacitor, node))
     farad = sum(term.farad * term.factor for term in terms)
@@ -155,6 +157,22 @@ def _node_line(circuit: EquivalentCircuit, node: str) -> InnerLine:
         time_constant_exact_s=float(circuit.constant[circuit.row[node]]),
     )
     return replace(line, why=difference_reason(line))
+
+
+def _inside(circuit: EquivalentCircuit, node: str) -> InnerLine:
+    """Give the line of what is inside a block: no hand rule looks into it, its time constant is the exact one."""
+    ohm, tau = circuit.z(node, node), float(circuit.constant[circuit.row[node]])
+    text = f"inside {block_of(node)}, solved: time constant {engineering(tau, 's', 3)}"
+    return InnerLine(
+        node=f"inside {block_of(node)}",
+        at=node,
+        resistance=LookingIn(ohm, "solved", text, (), "solved"),
+        resistance_exact_ohm=ohm,
+        capacitances=(),
+        capacitance_f=tau / ohm if ohm else 0.0,
+        time_constant_s=tau,
+        time_constant_exact_s=tau,
+    )
 
 
 def difference_reason(line: InnerLine) -> str:

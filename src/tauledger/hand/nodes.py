@@ -46,12 +46,16 @@ class Passage(Struct, frozen=True):
 def groups(circuit: EquivalentCircuit) -> tuple[Group, ...]:
     """List the rows in the order of the file: every live node, with the inner nodes of devices folded into the outer.
 
-    An inner node whose outer node is at AC ground has a row of its own.
+    An inner node whose outer node is at AC ground has a row of its own, and all that is inside a block has one.
     """
     inner = _inner_nodes(circuit)
     host: dict[str, str] = {}
+    states: dict[str, str] = {}
     for node in circuit.nodes:
         terminal = inner.get(node)
+        if block_of(node):
+            host[node] = states.setdefault(block_of(node), node)
+            continue
         host[node] = node if terminal is None or terminal.outer == GROUND else terminal.outer
     rows: dict[str, list[str]] = {}
     for node in circuit.nodes:
@@ -63,7 +67,7 @@ def groups(circuit: EquivalentCircuit) -> tuple[Group, ...]:
         terminal = inner.get(head)
         if terminal is None:
             role, owner, title = _describe(circuit, head)
-            name = node_name(circuit, head)
+            name = title if block_of(head) else node_name(circuit, head)
         else:
             role, owner = f"{terminal.word}, inside", terminal.owner
             at = "" if terminal.netlist_node == GROUND else f" ({terminal.netlist_node})"
@@ -75,6 +79,12 @@ def groups(circuit: EquivalentCircuit) -> tuple[Group, ...]:
         taken.add(name)
         found.append(Group(ordered, name, title, role, owner))
     return tuple(found)
+
+
+def block_of(node: str) -> str:
+    """Give the owner of a block (a fitted device, a folded instance) whose inner node this is, else nothing."""
+    owner, _, number = node.rpartition("'")
+    return owner if number.isdigit() else ""
 
 
 def node_name(circuit: EquivalentCircuit, node: str) -> str:
@@ -158,8 +168,8 @@ def _describe(circuit: EquivalentCircuit, node: str) -> tuple[str, str, str]:
     owner = next(iter(by_word.values()))[0] if by_word else ""
     name = node_name(circuit, node)
     if not phrases:
-        inside, _, state = name.partition("'")
-        return ("node", inside, f"inside {inside}") if state.isdigit() else ("node", owner, f"node {name}")
+        inside = block_of(node)
+        return ("node", inside, f"inside {inside}") if inside else ("node", owner, f"node {name}")
     return ", ".join(words), owner, f"{', '.join(phrases)} ({name})"
 
 

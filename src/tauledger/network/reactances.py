@@ -1,6 +1,6 @@
 """Every capacitance, inductance and transcapacitance as a rank-one term of C: C = Σ value · out · controlᵀ.
 
-A block has several terms, one per singular value of its C; `by_part` takes them together.
+A block has several terms, one per row of its C; `by_part` takes them together.
 
 All that a single part does to the network follows from it: its time constant value · controlᵀ Z out, its share
 value · (λᵀ out)(controlᵀ x), the pole it owns.
@@ -16,8 +16,6 @@ from tauledger.network.assemble import Network, Triplets, incidence
 from tauledger.network.solve import Complex, Real, Solution
 
 REACTIVE = ("capacitance", "inductance", "transcapacitance", "mutual inductance", "block")
-# Singular values below this are rounding of the largest one.
-NO_RANK = 1e-14
 
 
 class Reactances(Struct, frozen=True):
@@ -83,18 +81,17 @@ def by_part(terms: Reactances, values: Real) -> dict[str, float]:
 
 
 def _terms(network: Network, part: Part) -> list[tuple[Real, Real]]:
-    """Give out and control, (n,) each, of every term of a block's C."""
-    row_of = {node: row for node in part.nodes if (row := network.index(node)) is not None}
-    place = np.zeros((len(row_of), len(part.nodes)))
-    for column, node in enumerate(part.nodes):
-        if node in row_of:
-            place[list(row_of).index(node), column] = 1.0
-    u, size, vt = np.linalg.svd(place @ np.array(part.capacitances) @ place.T)
-    rows = list(row_of.values())
+    """Give out and control, (n,) each, of every term of a block's C: one per row, which loses no digit of any entry."""
+    rows = [network.index(node) for node in part.nodes]
     found = []
-    for k in range(int(np.sum(size > NO_RANK * size.max(initial=0.0)))):
+    for row, values in zip(rows, part.capacitances, strict=True):
+        if row is None or not any(values):
+            continue
         out, control = np.zeros(network.size), np.zeros(network.size)
-        out[rows], control[rows] = np.sqrt(size[k]) * u[:, k], np.sqrt(size[k]) * vt[k]
+        out[row] = 1.0
+        for column, value in zip(rows, values, strict=True):
+            if column is not None:
+                control[column] += value
         found.append((out, control))
     return found
 
