@@ -57,4 +57,4 @@ def test_what_the_grammar_refuses_the_wide_way_refuses_too() -> None:
 
 
 def site(text: str) -> Site:
-    return Site((SourceFile("board.cir", ("", text)),), Card(text, 0, (Piece(0, 2, 1),)))
+    return Site((SourceFile("board.cir", "\n" + text),), Card(text, 0, (Piece(0, 2, 1),)))

@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Iterator, Sequence
+from itertools import chain, groupby
 
 from msgspec import Struct, field
 
@@ -40,10 +42,22 @@ class Row(Struct, frozen=True):
     path: int
 
 
+class Block(Struct, frozen=True):
+    """Plain R, C and L of one instance as columns; values with all m worked in."""
+
+    kind: str
+    names: list[str]
+    a: list[int]
+    b: list[int]
+    values: list[float]
+    cards: Sequence[int]
+    path: int
+
+
 class Draft(Struct):
     """What elaboration has gathered so far.
 
-    numbers: node number by folded flat name. taken: where each flat element name was first used. changed: values of a
+    numbers: node number by folded flat name. taken: by flat element name the number of its card. changed: values of a
     Change by folded name that have not been used yet; used ones are taken out. refusals: what can be read but not
     reviewed. nodesets: volt by node number. scale: of the sizes of MOS transistors (.options scale). scopes: of all
     instances but the netlist itself. contexts: per instance the lines that say where it stands.
@@ -51,11 +65,11 @@ class Draft(Struct):
 
     nodes: list[str] = field(default_factory=lambda: [GROUND])
     numbers: dict[str, int] = field(default_factory=lambda: {GROUND: 0})
-    rows: list[Row] = field(default_factory=list)
+    rows: list[Row | Block] = field(default_factory=list)
     elements: list[Element] = field(default_factory=list)
     models: dict[str, Model] = field(default_factory=dict)
     instances: list[Instance] = field(default_factory=lambda: [Instance("", "", -1, -1, -1)])
-    taken: dict[str, str] = field(default_factory=dict)
+    taken: dict[str, int] = field(default_factory=dict)
     changed_elements: dict[str, tuple[str, float]] = field(default_factory=dict)
     changed_models: dict[tuple[str, str], tuple[str, str, float]] = field(default_factory=dict)
     fixed: set[str] = field(default_factory=set)
@@ -98,7 +112,7 @@ def check_all_used(draft: Draft) -> None:
     for name, _value in draft.changed_elements.values():
         if fold(name) in draft.fixed:
             raise InputError(f"{visible(name)} has no single value that could be set", "set a parameter of its model")
-        known = [row.name for row in draft.rows] + [e.name for e in draft.elements if e.letter in "VIEFGH"]
+        known = [*passives(draft).name] + [e.name for e in draft.elements if e.letter in "VIEFGH"]
         raise InputError(
             f"no element is called {visible(name)!r}", nearest(name, known, otherwise=f"there are {_listed(known)}")
         )
@@ -116,19 +130,55 @@ def _listed(names: list[str]) -> str:
     return (", ".join(names[:12]) + (", .." if len(names) > 12 else "")) or "none"
 
 
-def passives(rows: list[Row]) -> Passives:
-    """Turn rows into columns."""
+def passives(draft: Draft) -> Passives:
+    """Turn rows and blocks into columns."""
     import numpy as np
 
+    blocks = _blocks(draft.rows)
     return Passives(
-        kind="".join(row.kind for row in rows),
-        name=tuple(row.name for row in rows),
-        a=np.array([row.a for row in rows], dtype=np.int32),
-        b=np.array([row.b for row in rows], dtype=np.int32),
-        value=np.array([row.value for row in rows], dtype=np.float64),
-        card=np.array([row.card for row in rows], dtype=np.int32),
-        path=np.array([row.path for row in rows], dtype=np.int32),
+        kind="".join(block.kind for block in blocks),
+        name=tuple(chain.from_iterable(block.names for block in blocks)),
+        a=np.fromiter(chain.from_iterable(block.a for block in blocks), dtype=np.int32),
+        b=np.fromiter(chain.from_iterable(block.b for block in blocks), dtype=np.int32),
+        value=np.fromiter(chain.from_iterable(block.values for block in blocks), dtype=np.float64),
+        card=np.fromiter(chain.from_iterable(block.cards for block in blocks), dtype=np.int32),
+        path=np.repeat([block.path for block in blocks], [len(block.kind) for block in blocks]).astype(np.int32),
     )
+
+
+def _blocks(rows: list[Row | Block]) -> list[Block]:
+    """Put single rows in a row into blocks; a block has one path."""
+    blocks: list[Block] = []
+    for path, group in groupby(rows, key=lambda row: (isinstance(row, Block), row.path)):
+        if path[0]:
+            blocks += [block for block in group if isinstance(block, Block)]
+            continue
+        single = [row for row in group if isinstance(row, Row)]
+        blocks.append(
+            Block(
+                kind="".join(row.kind for row in single),
+                names=[row.name for row in single],
+                a=[row.a for row in single],
+                b=[row.b for row in single],
+                values=[row.value for row in single],
+                cards=[row.card for row in single],
+                path=path[1],
+            )
+        )
+    return blocks
+
+
+def inductors(draft: Draft) -> Iterator[tuple[str, int, int]]:
+    """Run through the plain inductors: name and node numbers."""
+    for row in draft.rows:
+        if isinstance(row, Row):
+            if row.kind == "L":
+                yield row.name, row.a, row.b
+            continue
+        at = row.kind.find("L")
+        while at >= 0:
+            yield row.names[at], row.a[at], row.b[at]
+            at = row.kind.find("L", at + 1)
 
 
 def finished(
@@ -149,7 +199,7 @@ def finished(
     return Circuit(
         title=title,
         nodes=tuple(draft.nodes),
-        passives=passives(draft.rows),
+        passives=passives(draft),
         elements=elements,
         models=tuple(model for model in draft.models.values() if model.name in used),
         drive=drive,

@@ -14,8 +14,8 @@ from tauledger.circuit import ADDED, GROUND, NO_CHANGE, Change, Circuit, Port, f
 from tauledger.errors import Diagnostic, InputError, NetlistError
 from tauledger.netlist.conditions import counts, define_all
 from tauledger.netlist.diagnostics import Site, gather, nearest, visible
-from tauledger.netlist.draft import Draft, Row, check_all_used, check_finite, draft_for, finished
-from tauledger.netlist.flatten import Surroundings, flatten
+from tauledger.netlist.draft import Draft, Row, check_all_used, check_finite, draft_for, finished, inductors
+from tauledger.netlist.flatten import flatten
 from tauledger.netlist.hints import hints
 from tauledger.netlist.items import Setting, Value, flattened
 from tauledger.netlist.netlist import Netlist
@@ -23,6 +23,7 @@ from tauledger.netlist.options import EFFECTIVE, option_settings, plain_value
 from tauledger.netlist.ports import choose_drive, choose_output, driven_as_written, parse_port
 from tauledger.netlist.references import check_references
 from tauledger.netlist.scopes import Scope, work_out_all
+from tauledger.netlist.surroundings import Surroundings
 
 ABSOLUTE_ZERO_C = -273.15
 ROOM_C = 27.0
@@ -191,7 +192,9 @@ def _check_ground(netlist: Netlist, draft: Draft) -> None:
         raise InputError(
             f"{visible(netlist.path)} has no elements", "the first line is the title: is a card lost there?"
         )
-    connected = any(0 in (row.a, row.b) for row in draft.rows) or any(0 in e.nodes for e in draft.elements)
+    connected = any(0 in e.nodes for e in draft.elements) or any(
+        0 in (row.a, row.b) if isinstance(row, Row) else 0 in row.a or 0 in row.b for row in draft.rows
+    )
     if not connected:
         raise InputError("no element is connected to ground", "call one node 0: all voltages are taken against it")
 
@@ -203,7 +206,7 @@ def _currents(draft: Draft) -> dict[str, Port]:
         for element in draft.elements
         if element.letter == "V"
     }
-    found |= {row.name: Port(draft.nodes[row.a], draft.nodes[row.b]) for row in draft.rows if row.kind == "L"}
+    found |= {name: Port(draft.nodes[a], draft.nodes[b]) for name, a, b in inductors(draft)}
     return found
 
 
@@ -217,6 +220,6 @@ def _add_loads(draft: Draft, change: Change, currents: dict[str, Port]) -> None:
         while fold(f"{load.kind}load{number}") in draft.taken:
             number += 1
         name = f"{load.kind}load{number}"
-        draft.taken[fold(name)] = ""
+        draft.taken[fold(name)] = ADDED
         a, b = draft.numbers[fold(port.plus)], draft.numbers[fold(port.minus)]
         draft.rows.append(Row(load.kind, name, a, b, load.value, ADDED, 0))

@@ -2,40 +2,40 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
-
-from msgspec import Struct
 from msgspec.structs import replace
 
 from tauledger import circuit
-from tauledger.circuit import GROUND, Element, Instance, ReadingNote, fold
+from tauledger.circuit import Element, Instance, ReadingNote, fold
 from tauledger.devices.catalogue import choose, families_of
 from tauledger.devices.family import Refusal, never_refused
 from tauledger.errors import Diagnostic, InputError, NetlistError
 from tauledger.netlist.assignments import ALL
 from tauledger.netlist.behaviour import formula_of
-from tauledger.netlist.bins import bin_bases, fits
+from tauledger.netlist.bins import bin_bases
+from tauledger.netlist.bulk import add_run
 from tauledger.netlist.conditions import counts, define_all
 from tauledger.netlist.controlled import behavioural, controlled, coupling, line
 from tauledger.netlist.diagnostics import MOST_DIAGNOSTICS, Site, nearest, visible
-from tauledger.netlist.draft import MOST_ELEMENTS, MOST_INSTANCES, MOST_NESTED_INSTANCES, Draft, Row, node_number
+from tauledger.netlist.draft import MOST_ELEMENTS, MOST_INSTANCES, MOST_NESTED_INSTANCES, Draft, Row
 from tauledger.netlist.elements import ElementCard, Fields, InstanceCard, device, fields, instance, multiplicity
 from tauledger.netlist.items import Item, Setting, Word
 from tauledger.netlist.letters import (
     CONTROLLED,
     MODELLED,
     NOT_READ,
-    PASSIVE_MODELS,
     PASSIVES,
     PLURAL,
     READ,
     SOURCES,
 )
-from tauledger.netlist.models import ModelCard, base_name, model_name, read_model
+from tauledger.netlist.lookup import model_for, picked_bin, visible_models
+from tauledger.netlist.models import ModelCard
 from tauledger.netlist.netlist import Definition, Netlist
 from tauledger.netlist.passive import impossible, passive
+from tauledger.netlist.runs import Run
 from tauledger.netlist.scopes import Binding, Scope, define, number_of, work_out_all
 from tauledger.netlist.sources import source
+from tauledger.netlist.surroundings import Surroundings, existing_node, node_of
 
 # Letters whose elements ngspice does not multiply by the m of the instances around them.
 WITHOUT_M = frozenset("VEHBKTSWOUYP")
@@ -45,33 +45,19 @@ AREAS = ("ad", "as")
 READ_ONLY = "`tauledger netlist` shows what was read"
 
 
-class Surroundings(Struct, frozen=True):
-    """The instance whose cards are being read.
-
-    prefix: "X1." before its own names. ports: node numbers by folded formal name. m: product of m of all instances
-    around. caller: the instance that holds it. lexical: where its definition stands, for the models and definitions
-    that it can see. models: what has been read here already, by folded name.
-    """
-
-    definition: Definition
-    scope: Scope
-    prefix: str
-    ports: dict[str, int]
-    m: float
-    path: int
-    context: tuple[str, ...]
-    caller: Surroundings | None
-    lexical: Surroundings | None
-    models: dict[str, ModelCard]
-
-
 def flatten(netlist: Netlist, draft: Draft, around: Surroundings, faults: list[Diagnostic]) -> None:
     """Read the element cards of one instance, and of all instances in it, into the draft; faults are added up."""
     for number in around.definition.elements:
-        site = Site(netlist.files, netlist.cards[number], around.context)
+        entry, _ = netlist.cards.entry(number)
         try:
-            if counts(netlist, number, around.scope, around.context):
+            if not counts(netlist, number, around.scope, around.context):
+                continue
+            if not isinstance(entry, Run):
+                site = Site(netlist.files, entry, around.context)
                 _element(netlist, draft, around, faults, number, site)
+            elif not add_run(netlist, draft, around, number, entry):
+                # Something in it is wrong or changed: line by line the message finds its place.
+                _lines(netlist, draft, around, faults, number, entry)
         except NetlistError as error:
             faults.extend(error.diagnostics)
         if len(faults) > 10 * MOST_DIAGNOSTICS:
@@ -85,6 +71,18 @@ def flatten(netlist: Netlist, draft: Draft, around: Surroundings, faults: list[D
             faults.extend(error.diagnostics)
 
 
+def _lines(
+    netlist: Netlist, draft: Draft, around: Surroundings, faults: list[Diagnostic], first: int, run: Run
+) -> None:
+    """Read the lines of a run one by one."""
+    for number in range(first, first + run.count):
+        site = Site(netlist.files, netlist.cards[number], around.context)
+        try:
+            _element(netlist, draft, around, faults, number, site)
+        except NetlistError as error:
+            faults.extend(error.diagnostics)
+
+
 def _start_from(netlist: Netlist, draft: Draft, around: Surroundings, items: tuple[Item, ...], site: Site) -> None:
     """Take the starting voltages of a `.nodeset` card; for a node that does not exist a note says so."""
     for item in items[1:]:
@@ -93,19 +91,12 @@ def _start_from(netlist: Netlist, draft: Draft, around: Surroundings, items: tup
         if item.name.text == ALL:
             draft.nodesets |= {node: value for node in range(1, len(draft.nodes)) if node not in draft.nodesets}
             continue
-        node = _existing(netlist, draft, around, item.name)
+        node = existing_node(netlist, draft, around, item.name)
         if node is None:
             says = f".nodeset: there is no node {visible(item.name.text)}, read past"
             around.scope.notes.append(ReadingNote(site.where, says))
         elif node:
             draft.nodesets[node] = value
-
-
-def _existing(netlist: Netlist, draft: Draft, around: Surroundings, word: Word) -> int | None:
-    key = fold(word.text)
-    if key in around.ports and key not in netlist.globals:
-        return around.ports[key]
-    return draft.numbers.get(key if key in netlist.globals else fold(around.prefix) + key)
 
 
 def _element(
@@ -118,7 +109,7 @@ def _element(
         raise site.fault(0, f"the circuit has more than {MOST_ELEMENTS} elements")
     items = netlist.items[number]
     card = fields(site, items)
-    name = _take_name(draft, around, card, site)
+    name = _take_name(netlist, draft, around, card, number, site)
     if letter == "X":
         _instance(netlist, draft, around, faults, number, site, card, name)
         return
@@ -134,21 +125,21 @@ def _element(
     elif letter == "T":
         part = line(site, card, around.scope)
     else:
-        seen = dict(reversed(list(_visible_models(netlist, around))))
+        seen = dict(reversed(list(visible_models(netlist, around))))
         bases = bin_bases(seen) if letter == "M" else frozenset()
         part = _modelled(site, card, letter, frozenset(seen) | bases, around.scope)
         part = _scaled(draft, part, letter)
         if part.model is not None and fold(part.model.text) not in seen:
-            part = replace(part, model=_picked(netlist, draft, seen, part, part.model, letter, site))
+            part = replace(part, model=picked_bin(netlist, draft, seen, part, part.model, letter, site))
     part = _multiplied(around, part, letter, name, site)
     if letter in PASSIVES and part.model is None and [key for key, _ in part.parameters] == ["value"]:
         _plain(netlist, draft, around, part, letter, name, number)
         return
-    model = None if part.model is None else _model(netlist, draft, seen[fold(part.model.text)], part.model, letter)
+    model = None if part.model is None else model_for(netlist, draft, seen[fold(part.model.text)], part.model, letter)
     element = Element(
         letter=letter,
         name=name,
-        nodes=tuple(_node(netlist, draft, around, node) for node in part.nodes),
+        nodes=tuple(node_of(netlist, draft, around, node) for node in part.nodes),
         model=model.model.name if model else "",
         parameters=_own_value(draft, name, part, letter),
         card=number,
@@ -201,27 +192,6 @@ def _scaled(draft: Draft, part: ElementCard, letter: str) -> ElementCard:
     return replace(part, parameters=tuple((name, value * by.get(name, 1.0)) for name, value in part.parameters))
 
 
-def _picked(
-    netlist: Netlist,
-    draft: Draft,
-    seen: dict[str, tuple[Surroundings, int]],
-    part: ElementCard,
-    word: Word,
-    letter: str,
-    site: Site,
-) -> Word:
-    """Pick the bin of a model (name.1, name.2, ..) by length and width."""
-    key = fold(word.text)
-    numbered = sorted((number, name) for name, (_, number) in seen.items() if name.rpartition(".")[0] == key)
-    bins = [_model(netlist, draft, seen[name], Word(name, word.at), letter).model for _, name in numbered]
-    for model in bins:
-        if fits(model, dict(part.parameters)):
-            own = fold(model.name).rpartition(":")[2]
-            return Word(own, word.at)
-    sizes = " and ".join(f"{name}={dict(part.parameters)[name]:g}" for name in "lw" if name in dict(part.parameters))
-    raise site.fault(word, f"no bin of model {word.text} takes {sizes or 'a transistor without l and w'}")
-
-
 def _multiplied(around: Surroundings, part: ElementCard, letter: str, name: str, site: Site) -> ElementCard:
     """Work in m: of the card and of the instances around, where ngspice counts it for this letter."""
     if letter in WITHOUT_M:
@@ -249,7 +219,7 @@ def _plain(
     value = _changed(draft, name, part.parameters[0][1])
     if problem := impossible(letter, value):
         raise InputError(f"{name}: {problem}")
-    a, b = (_node(netlist, draft, around, node) for node in part.nodes)
+    a, b = (node_of(netlist, draft, around, node) for node in part.nodes)
     scaled = value * part.m if letter == "C" else value / part.m
     draft.rows.append(Row(letter, name, a, b, scaled, number, around.path))
 
@@ -278,7 +248,7 @@ def _formula(
         site,
         part.behaviour,
         scope=around.scope,
-        node=lambda text: _node(netlist, draft, around, Word(text, at)),
+        node=lambda text: node_of(netlist, draft, around, Word(text, at)),
         source=lambda text: around.prefix + text,
     )
     if part.table:
@@ -312,12 +282,13 @@ def _not_read(site: Site, letter: str) -> NetlistError:
     return site.fault(0, message, "a comment begins with *, a continuation with +", wide=len(word))
 
 
-def _take_name(draft: Draft, around: Surroundings, card: Fields, site: Site) -> str:
+def _take_name(netlist: Netlist, draft: Draft, around: Surroundings, card: Fields, number: int, site: Site) -> str:
     name = around.prefix + card.name.text
     first = draft.taken.get(fold(name))
     if first is not None:
-        raise site.fault(card.name, f"there is an element {card.name.text} already", f"it stands at {first}")
-    draft.taken[fold(name)] = site.where
+        where = Site(netlist.files, netlist.cards[first]).where
+        raise site.fault(card.name, f"there is an element {card.name.text} already", f"it stands at {where}")
+    draft.taken[fold(name)] = number
     return name
 
 
@@ -335,86 +306,6 @@ def _product(around: Surroundings, own: float, name: str, site: Site) -> float:
         )
         around.scope.notes.append(ReadingNote(site.where, says))
     return own * around.m
-
-
-def _node(netlist: Netlist, draft: Draft, around: Surroundings, word: Word) -> int:
-    key = fold(word.text)
-    if key in (GROUND, "gnd"):
-        return 0
-    if key in netlist.globals:
-        return node_number(draft, word.text)
-    port = around.ports.get(key)
-    return node_number(draft, around.prefix + word.text) if port is None else port
-
-
-def _visible_models(netlist: Netlist, around: Surroundings) -> Iterator[tuple[str, tuple[Surroundings, int]]]:
-    """Run through the models that can be seen, nearest first; of two in one place the first counts."""
-    here: Surroundings | None = around
-    while here is not None:
-        for number in here.definition.models:
-            if counts(netlist, number, here.scope, here.context):
-                yield model_name(netlist.items[number]), (here, number)
-        here = here.lexical
-
-
-def _model(netlist: Netlist, draft: Draft, found: tuple[Surroundings, int], word: Word, letter: str) -> ModelCard:
-    """Read a model where it stands, once for each instance that holds it, with the changes for it."""
-    home, number = found
-    key = fold(word.text)
-    types = PASSIVE_MODELS[letter] if letter in PASSIVES else MODELLED[letter].model_types
-    known = home.models.get(key)
-    if known is not None and known.model.type in types:
-        return known
-    site = Site(netlist.files, netlist.cards[number], home.context)
-    name = netlist.items[number][1]
-    assert isinstance(name, Word)
-    flat = f"{home.prefix.removesuffix('.')}:{name.text}" if home.prefix else name.text
-    words = PASSIVES[letter] if letter in PASSIVES else MODELLED[letter].words
-    base = _base(netlist, draft, home, number, letter, site)
-    card = read_model(
-        site,
-        netlist.items[number],
-        types,
-        words,
-        home.scope,
-        letter=letter,
-        name=flat,
-        card=number,
-        path=home.path,
-        base=base,
-    )
-    values = dict(card.model.parameters)
-    settable = frozenset().union(*(family.model_parameters for family in families_of(letter))) | values.keys()
-    for owner, parameter in [key for key in draft.changed_models if key[0] == fold(flat)]:
-        if parameter in settable:
-            values[parameter] = draft.changed_models.pop((owner, parameter))[2]
-    card = replace(card, model=replace(card.model, parameters=tuple(values.items())))
-    twins = [
-        other
-        for other in home.definition.models
-        if model_name(netlist.items[other]) == key and counts(netlist, other, home.scope, home.context)
-    ]
-    for twin in twins[1:]:
-        says = f"model {name.text} is defined twice; the first definition counts, as in ngspice"
-        home.scope.notes.append(ReadingNote(Site(netlist.files, netlist.cards[twin]).where, says))
-    home.models[key] = card
-    draft.models[fold(flat)] = card.model
-    return card
-
-
-def _base(netlist: Netlist, draft: Draft, home: Surroundings, number: int, letter: str, site: Site) -> ModelCard | None:
-    """Read the model that another one is a kind of; it must be seen from there and be another one."""
-    word = base_name(netlist.items[number])
-    if word is None:
-        return None
-    seen = dict(reversed(list(_visible_models(netlist, home))))
-    found = seen.get(fold(word.text))
-    if found is None or found[1] == number or base_name(netlist.items[found[1]]) is not None:
-        problem = "is a kind of another one itself" if found else "does not exist"
-        raise site.fault(word, f"model {word.text} {problem}", nearest(word.text, seen))
-    says = f"a model made from {word.text} (AKO): ngspice reads that only in a compatibility mode"
-    home.scope.notes.append(ReadingNote(site.where, says))
-    return _model(netlist, draft, found, word, letter)
 
 
 def _instance(
@@ -448,7 +339,7 @@ def _instance(
         scope=scope,
         prefix=f"{name}.",
         ports={
-            fold(port.text): _node(netlist, draft, around, node)
+            fold(port.text): node_of(netlist, draft, around, node)
             for port, node in zip(definition.ports, call.nodes, strict=True)
         },
         m=_instance_m(around, definition, call, site, netlist),

@@ -7,32 +7,34 @@ quotes, `$` behind a blank or a comma.
 from __future__ import annotations
 
 import re
-from collections.abc import Sequence
 
 from msgspec import Struct
 
 from tauledger.errors import Diagnostic
 from tauledger.netlist.diagnostics import diagnostic, unsafe
 from tauledger.netlist.netlist import Card, Piece, Script
+from tauledger.netlist.runs import Run, run_at, without_last
 
 _MARK = re.compile(r"""'[^']*'|"[^"]*"|;|//|\$""")
+_PLAIN = tuple("RCLrcl")
 _COMMENT_START = ("*", ";", "//", "$")
 
 
 class Assembled(Struct, frozen=True):
     """A file in logical lines, and its `.control` blocks."""
 
-    cards: tuple[Card, ...]
+    cards: tuple[Card | Run, ...]
     scripts: tuple[Script, ...]
     faults: tuple[Diagnostic, ...]
 
 
-def assemble(lines: Sequence[str], *, file: int, path: str, start: int = 0) -> Assembled:
-    """Join the physical lines from index `start` on to logical cards.
+def assemble(text: str, *, file: int, path: str, start: int = 0) -> Assembled:
+    """Join the physical lines of a file from index `start` on to logical cards; plain ones come out as runs.
 
     Faults: a continuation with nothing before it, a control character in a card, a block without `.endc`.
     """
-    cards: list[Card] = []
+    lines = text.split("\n")
+    cards: list[Card | Run] = []
     scripts: list[Script] = []
     faults: list[Diagnostic] = []
     texts: list[str] = []
@@ -43,13 +45,27 @@ def assemble(lines: Sequence[str], *, file: int, path: str, start: int = 0) -> A
     opened = 0
 
     def close() -> None:
-        text = "".join(texts)
-        if text.strip():
-            cards.append(Card(text, file, tuple(pieces)))
+        joint = "".join(texts)
+        if joint.strip():
+            cards.append(Card(joint, file, tuple(pieces)))
         texts.clear()
         pieces.clear()
 
+    at = sum(len(line) + 1 for line in lines[:start])
+    behind = start
     for number, line in enumerate(lines[start:], start + 1):
+        begin, at = at, at + len(line) + 1
+        if number <= behind:
+            continue
+        if line[:1] in _PLAIN and script is None and not joined:
+            run = run_at(text, begin, file=file, line=number)
+            if run is not None and _continued(lines, number - 1 + run.count):
+                run = without_last(run)
+            if run is not None:
+                close()
+                cards.append(run)
+                behind = number - 1 + run.count
+                continue
         content = line.strip()
         if script is not None:
             if content[:5].lower() == ".endc":
@@ -63,17 +79,17 @@ def assemble(lines: Sequence[str], *, file: int, path: str, start: int = 0) -> A
         if content[:8].lower() == ".control":
             script, opened = [], number
             continue
-        text = without_comment(line)
-        column = len(text) - len(text.lstrip())
+        plain = without_comment(line)
+        column = len(plain) - len(plain.lstrip())
         continues = joined
-        if text[column] == "+" and not joined:
+        if plain[column] == "+" and not joined:
             continues = True
             column += 1
             if not texts:
                 message = "this continues nothing: no card stands before it"
                 faults.append(diagnostic(path, number, column, line, message))
                 continue
-        body = text[column:].rstrip()
+        body = plain[column:].rstrip()
         joined = body.endswith("\\\\")
         body = body.removesuffix("\\\\").rstrip()
         column += len(body) - len(body.lstrip())
@@ -101,6 +117,16 @@ def assemble(lines: Sequence[str], *, file: int, path: str, start: int = 0) -> A
             )
         )
     return Assembled(tuple(cards), tuple(scripts), tuple(faults))
+
+
+def _continued(lines: list[str], at: int) -> bool:
+    """Say whether the line before index `at` is continued behind it: blank lines and comments may stand between."""
+    while at < len(lines):
+        content = lines[at].strip()
+        if content and not content.startswith(_COMMENT_START):
+            return content.startswith("+")
+        at += 1
+    return False
 
 
 def without_comment(line: str) -> str:

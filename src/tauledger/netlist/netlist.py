@@ -6,25 +6,38 @@ Nothing here is evaluated yet: parameters, models and instances get their values
 from __future__ import annotations
 
 from bisect import bisect_right
+from collections.abc import Iterable
+from functools import lru_cache
 
 from msgspec import Struct, field
 
 from tauledger.circuit import Place, ReadingNote
 from tauledger.netlist.items import Item, Setting, Word
+from tauledger.netlist.runs import Run, row, row_items
 
 TOP = -1
 
 
 class SourceFile(Struct, frozen=True):
-    """One file that was read: its path as the user would type it and its physical lines without their ends.
+    """One file that was read: its path as the user would type it and its text, lines ended by line feeds only.
 
     included_by: number of the including file, or -1; included_at: the line of the `.include` there, from 1.
     """
 
     path: str
-    lines: tuple[str, ...]
+    text: str
     included_by: int = -1
     included_at: int = 0
+
+    @property
+    def lines(self) -> list[str]:
+        """The physical lines without their ends."""
+        return _lines(self.text)
+
+
+@lru_cache(maxsize=16)
+def _lines(text: str) -> list[str]:
+    return text.split("\n")
 
 
 class Piece(Struct, frozen=True):
@@ -43,6 +56,56 @@ class Card(Struct, frozen=True):
     pieces: tuple[Piece, ...]
 
 
+class Cards(Struct, frozen=True):
+    """The logical cards in the order of reading, by number; the lines of a run count one by one.
+
+    entries: cards and runs. starts: the number of each entry's first card. count: of all cards.
+    """
+
+    entries: tuple[Card | Run, ...]
+    starts: tuple[int, ...]
+    count: int
+
+    def __len__(self) -> int:
+        return self.count
+
+    def __getitem__(self, number: int) -> Card:
+        entry, inside = self.entry(number)
+        if isinstance(entry, Card):
+            return entry
+        text, column = row(entry, inside)
+        return Card(text, entry.file, (Piece(0, entry.line + inside, column),))
+
+    def entry(self, number: int) -> tuple[Card | Run, int]:
+        """Give the card or run to which a number belongs, and its place in the run."""
+        if not 0 <= number < self.count:
+            raise IndexError(number)
+        at = bisect_right(self.starts, number) - 1
+        return self.entries[at], number - self.starts[at]
+
+
+def numbered(entries: Iterable[Card | Run]) -> Cards:
+    """Number cards and the lines of runs."""
+    kept, starts, count = tuple(entries), [], 0
+    for entry in kept:
+        starts.append(count)
+        count += entry.count if isinstance(entry, Run) else 1
+    return Cards(kept, tuple(starts), count)
+
+
+class ItemsOfCards(Struct, frozen=True):
+    """What each card holds, by number; of a run's lines worked out when asked for. held: per entry of `cards`."""
+
+    cards: Cards
+    held: tuple[tuple[Item, ...], ...]
+
+    def __getitem__(self, number: int) -> tuple[Item, ...]:
+        entry, inside = self.cards.entry(number)
+        if isinstance(entry, Run):
+            return row_items(entry, inside)
+        return self.held[bisect_right(self.cards.starts, number) - 1]
+
+
 class Script(Struct, frozen=True):
     """A `.control` block: number of its file, its line from 1, and its lines, the fences left out."""
 
@@ -54,7 +117,8 @@ class Script(Struct, frozen=True):
 class Definition(Struct, frozen=True):
     """A subcircuit, or the netlist itself (`card` is TOP, name and ports empty); cards are numbers in `Netlist.cards`.
 
-    defaults: the parameters on the `.subckt` card. elements, parameters, models, nodesets: card numbers in file order.
+    defaults: the parameters on the `.subckt` card. elements, parameters, models, nodesets: card numbers in file order,
+    of a run the first one's.
     """
 
     name: str
@@ -82,8 +146,8 @@ class Netlist(Struct, frozen=True):
     path: str
     title: str
     files: tuple[SourceFile, ...]
-    cards: tuple[Card, ...]
-    items: tuple[tuple[Item, ...], ...]
+    cards: Cards
+    items: ItemsOfCards
     top: Definition
     globals: tuple[str, ...]
     options: tuple[int, ...]

@@ -21,6 +21,7 @@ from tauledger.netlist.diagnostics import Site, visible
 from tauledger.netlist.items import Word
 from tauledger.netlist.lines import assemble
 from tauledger.netlist.netlist import Card, Netlist, Script, SourceFile
+from tauledger.netlist.runs import Run
 from tauledger.netlist.sections import Call, library_call, no_such_section, take, words_behind
 from tauledger.netlist.structure import structure
 
@@ -36,7 +37,7 @@ class _Reading(Struct):
     folder: Path
     allowed: tuple[Path, ...] = ()
     files: list[SourceFile] = field(default_factory=list)
-    cards: list[Card] = field(default_factory=list)
+    cards: list[Card | Run] = field(default_factory=list)
     scripts: list[Script] = field(default_factory=list)
     faults: list[Diagnostic] = field(default_factory=list)
     notes: list[ReadingNote] = field(default_factory=list)
@@ -55,11 +56,11 @@ def read(path: str | Path, *, allow: Sequence[str | Path] = ()) -> Netlist:
     main = Path(typed)
     data = _content(main, visible(typed), MOST_BYTES)
     reading = _Reading(folder=main.resolve().parent, allowed=tuple(map(_folder, allow)))
-    lines = _decoded(data, visible(typed))
-    _take(reading, SourceFile(typed, lines), data, start=1, above=((main.resolve(), ""),), section=None)
+    text = _decoded(data, visible(typed))
+    _take(reading, SourceFile(typed, text), data, start=1, above=((main.resolve(), ""),), section=None)
     netlist = structure(
         path=typed,
-        title=_title(lines[0]),
+        title=_title(text.partition("\n")[0]),
         files=tuple(reading.files),
         cards=tuple(reading.cards),
         scripts=tuple(reading.scripts),
@@ -93,7 +94,7 @@ def _take(
     reading.files.append(source)
     reading.digest.update(data)
     reading.size += len(data)
-    assembled = assemble(source.lines, file=number, path=source.path, start=start)
+    assembled = assemble(source.text, file=number, path=source.path, start=start)
     taken = take(tuple(reading.files), assembled.cards, section.section.text if section else None)
     if taken.missing is not None:
         return taken.missing
@@ -101,6 +102,9 @@ def _take(
     reading.faults.extend(assembled.faults)
     reading.faults.extend(taken.faults)
     for card in taken.cards:
+        if isinstance(card, Run):
+            reading.cards.append(card)
+            continue
         call = library_call(card)
         if call is None and card.text.split(maxsplit=1)[0].lower() not in INCLUDES:
             reading.cards.append(card)
@@ -134,10 +138,10 @@ def _include(
         raise site.fault(name, f"the netlist includes more than {MOST_FILES} files")
     try:
         data = _content(resolved, visible(target), MOST_BYTES - reading.size)
-        lines = _decoded(data, visible(target))
+        text = _decoded(data, visible(target))
     except InputError as error:
         raise site.fault(name, error.message, error.hint) from error
-    source = SourceFile(target, lines, number, card.pieces[0].line)
+    source = SourceFile(target, text, number, card.pieces[0].line)
     missing = _take(reading, source, data, start=0, above=(*above, key), section=call)
     if missing is not None:
         assert call is not None
@@ -209,8 +213,8 @@ def _content(path: Path, shown: str, limit: int) -> bytes:
     return data
 
 
-def _decoded(data: bytes, shown: str) -> tuple[str, ...]:
-    """Decode as UTF-8, else Latin-1, and split at line feeds only: no other character ends a line."""
+def _decoded(data: bytes, shown: str) -> str:
+    """Decode as UTF-8, else Latin-1; line feeds end the lines, alone or behind a carriage return, and nothing else."""
     if data.startswith((codecs.BOM_UTF16_LE, codecs.BOM_UTF16_BE)):
         raise InputError(f"{shown} is UTF-16 text", "save it as UTF-8")
     if b"\0" in data:
@@ -221,7 +225,7 @@ def _decoded(data: bytes, shown: str) -> tuple[str, ...]:
         text = data.decode("utf-8-sig")
     except UnicodeDecodeError:
         text = data.decode("latin-1")
-    return tuple(line.removesuffix("\r") for line in text.removesuffix("\n").split("\n"))
+    return text.removesuffix("\n").replace("\r\n", "\n").removesuffix("\r")
 
 
 def _title(line: str) -> str:

@@ -9,7 +9,7 @@ from msgspec.structs import replace
 from tauledger.circuit import Apply, Current, Element, Formula, fold
 from tauledger.errors import Diagnostic
 from tauledger.netlist.diagnostics import Site, nearest, visible
-from tauledger.netlist.draft import Draft
+from tauledger.netlist.draft import Draft, inductors
 from tauledger.netlist.netlist import Netlist
 
 # What F, H, W and i() measure: the elements with a branch current of their own.
@@ -18,14 +18,14 @@ MEASURED = frozenset("VEHL")
 
 def check_references(netlist: Netlist, draft: Draft, faults: list[Diagnostic]) -> None:
     """Replace each reference by the name of the element it means; a fault is added for one that means none."""
-    inductors = {fold(row.name): row.name for row in draft.rows if row.kind == "L"}
-    inductors |= {fold(element.name): element.name for element in draft.elements if element.letter == "L"}
+    coils = {fold(name): name for name, _, _ in inductors(draft)}
+    coils |= {fold(element.name): element.name for element in draft.elements if element.letter == "L"}
     sources = {fold(element.name): element.name for element in draft.elements if element.letter == "V"}
-    measured = {fold(e.name): e.name for e in draft.elements if e.letter in MEASURED} | inductors
+    measured = {fold(e.name): e.name for e in draft.elements if e.letter in MEASURED} | coils
     for k, element in enumerate(draft.elements):
         if not element.references and element.formula is None:
             continue
-        known, words = (inductors, "inductor") if element.letter == "K" else (sources, "voltage source")
+        known, words = (coils, "inductor") if element.letter == "K" else (sources, "voltage source")
         resolved: list[str] = []
         for name in element.references:
             _resolve(netlist, draft, element, name, known, words, resolved, faults)

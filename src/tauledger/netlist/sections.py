@@ -11,6 +11,7 @@ from tauledger.errors import Diagnostic, NetlistError
 from tauledger.netlist.diagnostics import Site, nearest
 from tauledger.netlist.items import Word
 from tauledger.netlist.netlist import Card, SourceFile
+from tauledger.netlist.runs import Run
 
 _QUOTES = "'\""
 
@@ -25,7 +26,7 @@ class Call(Struct, frozen=True):
 class Taken(Struct, frozen=True):
     """The cards of a file that count. missing: the names of its sections where the wanted one is not among them."""
 
-    cards: tuple[Card, ...]
+    cards: tuple[Card | Run, ...]
     faults: tuple[Diagnostic, ...]
     missing: tuple[str, ...] | None = None
 
@@ -54,16 +55,20 @@ def library_call(card: Card) -> Call | None:
     return Call(words[0], words[1]) if len(words) == 2 else None
 
 
-def take(files: tuple[SourceFile, ...], cards: Sequence[Card], wanted: str | None) -> Taken:
+def take(files: tuple[SourceFile, ...], cards: Sequence[Card | Run], wanted: str | None) -> Taken:
     """Give the cards of one section of a file, or with `wanted` None those outside of all sections.
 
     Faults: a section that is never closed, or is closed where none is open; a `.lib` with neither section nor `.endl`.
     """
-    kept: list[Card] = []
+    kept: list[Card | Run] = []
     faults: list[Diagnostic] = []
     names: list[str] = []
     inside: tuple[Card, str] | None = None
     for card in cards:
+        if isinstance(card, Run):
+            if (inside is None) if wanted is None else (inside is not None and fold(inside[1]) == fold(wanted)):
+                kept.append(card)
+            continue
         head = _head(card)
         site = Site(files, card)
         if head == ".endl":

@@ -16,8 +16,9 @@ from tauledger.netlist.diagnostics import Site, gather, nearest, visible
 from tauledger.netlist.expressions import parse_formula
 from tauledger.netlist.items import Item, Setting, Word, flattened
 from tauledger.netlist.letters import READ, TIME_FUNCTIONS
-from tauledger.netlist.netlist import TOP, Card, Definition, Netlist, Script, SourceFile
+from tauledger.netlist.netlist import TOP, Card, Cards, Definition, ItemsOfCards, Netlist, Script, SourceFile, numbered
 from tauledger.netlist.options import EFFECTIVE, option_settings
+from tauledger.netlist.runs import Run
 
 ANALYSES = frozenset([".ac", ".dc", ".disto", ".noise", ".op", ".pss", ".pz", ".sens", ".sp", ".tf", ".tran"])
 OUTPUTS = {".print": ".print", ".plot": ".plot", ".save": ".save", ".probe": ".probe", ".meas": ".meas"}
@@ -88,7 +89,7 @@ def structure(
     path: str,
     title: str,
     files: tuple[SourceFile, ...],
-    cards: tuple[Card, ...],
+    cards: tuple[Card | Run, ...],
     scripts: tuple[Script, ...],
     faults: tuple[Diagnostic, ...],
 ) -> Netlist:
@@ -98,8 +99,13 @@ def structure(
     """
     sorting = _Sorting(files, [_Open("", TOP)])
     found = list(faults)
+    all_cards = numbered(cards)
     items: list[tuple[Item, ...]] = []
-    for number, card in enumerate(cards):
+    for number, card in zip(all_cards.starts, cards, strict=True):
+        if isinstance(card, Run):
+            _sort_run(sorting, number, all_cards)
+            items.append(())
+            continue
         site = Site(files, card)
         try:
             items.append(_sort(sorting, number, site))
@@ -107,11 +113,11 @@ def structure(
             found.extend(error.diagnostics)
             items.append(())
     for unclosed in sorting.open[1:]:
-        site = Site(files, cards[unclosed.card])
+        site = Site(files, all_cards[unclosed.card])
         found.extend(site.fault(0, "this subcircuit is never closed", "close it with .ends", wide=7).diagnostics)
     if not sorting.open[1:]:
         for block, _ in sorting.open[0].branches:
-            found.extend(_never_ended(Site(files, cards[sorting.blocks[block][0]])).diagnostics)
+            found.extend(_never_ended(Site(files, all_cards[sorting.blocks[block][0]])).diagnostics)
     if found:
         raise gather(found, files)
     for script in scripts:
@@ -121,8 +127,8 @@ def structure(
         path=path,
         title=title,
         files=files,
-        cards=cards,
-        items=tuple(items),
+        cards=all_cards,
+        items=ItemsOfCards(all_cards, tuple(items)),
         top=sorting.open[0].closed(),
         globals=tuple(sorting.globals),
         options=tuple(sorting.options),
@@ -136,6 +142,17 @@ def structure(
         blocks=tuple(map(tuple, sorting.blocks)),
         within=sorting.within,
     )
+
+
+def _sort_run(sorting: _Sorting, number: int, cards: Cards) -> None:
+    """Put a run where it belongs."""
+    if sorting.ended:
+        site = Site(sorting.files, cards[number])
+        sorting.notes.append(ReadingNote(site.where, f"cards behind .end ({sorting.ended}) are read, as ngspice does"))
+        sorting.ended = ""
+    if sorting.open[-1].branches:
+        sorting.within[number] = tuple(sorting.open[-1].branches)
+    sorting.open[-1].elements.append(number)
 
 
 def _sort(sorting: _Sorting, number: int, site: Site) -> tuple[Item, ...]:

@@ -1,0 +1,69 @@
+"""Runs of plain lines → columns of the flat circuit, the same as line by line."""
+
+from __future__ import annotations
+
+import math
+
+from tauledger.circuit import GROUND, fold
+from tauledger.netlist.draft import MOST_ELEMENTS, Block, Draft
+from tauledger.netlist.items import Word
+from tauledger.netlist.netlist import Netlist
+from tauledger.netlist.runs import Columns, Run, columns
+from tauledger.netlist.surroundings import Surroundings, node_of
+
+
+def add_run(netlist: Netlist, draft: Draft, around: Surroundings, number: int, run: Run) -> bool:
+    """Add the elements of a run in columns; False, and nothing added, where its lines must be read one by one."""
+    found = columns(run)
+    prefix = fold(around.prefix)
+    names = [prefix + name for name in found.folded_names] if prefix else found.folded_names
+    fresh = dict(zip(names, range(number, number + run.count), strict=True))
+    changed = not draft.changed_elements.keys().isdisjoint(fresh)
+    if len(fresh) < run.count or changed or not draft.taken.keys().isdisjoint(fresh):
+        return False
+    kind = "".join([name[0] for name in found.folded_names]).upper()
+    lowest = min(found.values)
+    if lowest < 0.0 or (lowest == 0.0 and "R" in kind) or max(found.values) == math.inf:
+        return False
+    if len(draft.taken) + run.count > MOST_ELEMENTS:
+        return False
+    numbers = _node_numbers(netlist, draft, around, found)
+    values = found.values
+    if around.m != 1.0:
+        values = [v * around.m if k == "C" else v / around.m for k, v in zip(kind, values, strict=True)]
+    draft.taken.update(fresh)
+    draft.rows.append(
+        Block(
+            kind=kind,
+            names=[around.prefix + name for name in found.names] if prefix else found.names,
+            a=[numbers[key] for key in found.folded_a],
+            b=[numbers[key] for key in found.folded_b],
+            values=values,
+            cards=range(number, number + run.count),
+            path=around.path,
+        )
+    )
+    return True
+
+
+def _node_numbers(netlist: Netlist, draft: Draft, around: Surroundings, found: Columns) -> dict[str, int]:
+    """Give the node numbers of a run by folded name on its cards; new nodes are numbered in the order of the cards."""
+    both = [""] * (2 * len(found.a))
+    both[0::2], both[1::2] = found.folded_a, found.folded_b
+    written = [""] * len(both)
+    written[0::2], written[1::2] = found.a, found.b
+    # Of several spellings the first stays.
+    spelt = dict(zip(reversed(both), reversed(written), strict=True))
+    if around.path:
+        return {key: node_of(netlist, draft, around, Word(spelt[key], 0)) for key in dict.fromkeys(both)}
+    known = {GROUND: 0, "gnd": 0}
+    for key in dict.fromkeys(both):
+        if key in known:
+            continue
+        number = draft.numbers.get(key)
+        if number is None:
+            number = len(draft.nodes)
+            draft.numbers[key] = number
+            draft.nodes.append(spelt[key])
+        known[key] = number
+    return known
