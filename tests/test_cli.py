@@ -90,11 +90,12 @@ def test_options_reach_the_review(run: Run, asked: dict[str, Any]) -> None:
     code, _, _ = run(
         *("review", "board.cir", "--input", "VS", "--output", "v(a,b)", "--midband", "2.2meg"),
         *("--timeout", "5", "--library", "/opt/libngspice.so"),
-        *("--set", "RL=2k", "--set", "nsmall.bf=100", "--allow-include", "../parts"),
+        *("--set", "RL=2k", "--set", "nsmall.bf=100", "--allow-include", "../parts", "--fold", "XU1"),
     )
     assert code == ExitCode.OK
     assert asked == {
         "path": "board.cir",
+        "fold": ("XU1",),
         "drive": "VS",
         "output": "v(a,b)",
         "midband_hz": 2.2e6,

@@ -55,7 +55,8 @@ def test_network_and_engine_agree_to_rounding(board: str, engine: Engine) -> Non
     grid = decades(low / 100.0, 100.0 * numbers.edges.f_high.hz, 20)
     sweep = engine.sweep(grid)
     near = agreement(grid, response(numbers.network, grid), sweep.response, numbers.midband.gain)
-    assert near.max_relative_error <= 1e-9
+    fitted = any(part.kind == "block" for device in numbers.devices for part in device.parts)
+    assert near.max_relative_error <= (1e-6 if fitted else 1e-9)
 
 
 @pytest.mark.parametrize("board", BOARDS)

@@ -88,10 +88,11 @@ def _terms(network: Network, part: Part) -> list[tuple[Real, Real]]:
         if row is None or not any(values):
             continue
         out, control = np.zeros(network.size), np.zeros(network.size)
-        out[row] = 1.0
+        # half of its size on each side, as of a symmetric term
+        out[row] = max(map(abs, values)) ** 0.5
         for column, value in zip(rows, values, strict=True):
             if column is not None:
-                control[column] += value
+                control[column] += value / out[row]
         found.append((out, control))
     return found
 
