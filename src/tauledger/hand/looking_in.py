@@ -14,7 +14,7 @@ import numpy as np
 from msgspec.structs import replace
 
 from tauledger.circuit import GROUND
-from tauledger.hand.branches import Branch, Walk, branches, carrying, close, total
+from tauledger.hand.branches import Branch, Walk, bare, branches, carrying, close, total
 from tauledger.hand.equivalent import EquivalentCircuit
 from tauledger.hand.estimate import LookingIn, Resistance
 from tauledger.hand.figures import plain
@@ -152,7 +152,7 @@ def _line(head: str, found: Sequence[Branch], ohm: float) -> str:
     shown = carrying(found)
     if not shown:
         return f"{head} = {plain(ohm)}"
-    symbols = " ‖ ".join(branch.symbol for branch in shown)
+    symbols = " ‖ ".join(branch.symbol for branch in shown) if len(shown) > 1 else bare(shown[0].symbol)
     values = " ‖ ".join(plain(branch.ohm) for branch in shown)
     parts = [head, symbols, values] if len(shown) == 1 else [head, symbols, values, plain(ohm)]
     return "; ".join([" = ".join(parts), *(branch.detail for branch in shown if branch.detail)])
