@@ -3,8 +3,9 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Mapping
 
-from tauledger.circuit import GROUND, fold
+from tauledger.circuit import fold
 from tauledger.netlist.draft import MOST_ELEMENTS, Block, Draft
 from tauledger.netlist.items import Word
 from tauledger.netlist.netlist import Netlist
@@ -36,8 +37,8 @@ def add_run(netlist: Netlist, draft: Draft, around: Surroundings, number: int, r
         Block(
             kind=kind,
             names=[around.prefix + name for name in found.names] if prefix else found.names,
-            a=[numbers[key] for key in found.folded_a],
-            b=[numbers[key] for key in found.folded_b],
+            a=list(map(numbers.__getitem__, found.folded_a)),
+            b=list(map(numbers.__getitem__, found.folded_b)),
             values=values,
             cards=range(number, number + run.count),
             path=around.path,
@@ -46,24 +47,20 @@ def add_run(netlist: Netlist, draft: Draft, around: Surroundings, number: int, r
     return True
 
 
-def _node_numbers(netlist: Netlist, draft: Draft, around: Surroundings, found: Columns) -> dict[str, int]:
+def _node_numbers(netlist: Netlist, draft: Draft, around: Surroundings, found: Columns) -> Mapping[str, int]:
     """Give the node numbers of a run by folded name on its cards; new nodes are numbered in the order of the cards."""
-    both = [""] * (2 * len(found.a))
-    both[0::2], both[1::2] = found.folded_a, found.folded_b
-    written = [""] * len(both)
+    keys, written = [""] * (2 * len(found.a)), [""] * (2 * len(found.a))
+    keys[0::2], keys[1::2] = found.folded_a, found.folded_b
     written[0::2], written[1::2] = found.a, found.b
-    # Of several spellings the first stays.
-    spelt = dict(zip(reversed(both), reversed(written), strict=True))
+    different = dict.fromkeys(keys)
     if around.path:
-        return {key: node_of(netlist, draft, around, Word(spelt[key], 0)) for key in dict.fromkeys(both)}
-    known = {GROUND: 0, "gnd": 0}
-    for key in dict.fromkeys(both):
-        if key in known:
-            continue
-        number = draft.numbers.get(key)
-        if number is None:
-            number = len(draft.nodes)
-            draft.numbers[key] = number
-            draft.nodes.append(spelt[key])
-        known[key] = number
-    return known
+        spelt = dict(zip(reversed(keys), reversed(written), strict=True))
+        return {key: node_of(netlist, draft, around, Word(spelt[key], 0)) for key in different}
+    new = [key for key in different if key not in draft.numbers]
+    draft.numbers.update(zip(new, range(len(draft.nodes), len(draft.nodes) + len(new)), strict=True))
+    if keys != written:
+        # Of several spellings the first stays.
+        spelt = dict(zip(reversed(keys), reversed(written), strict=True))
+        new = [spelt[key] for key in new]
+    draft.nodes.extend(new)
+    return draft.numbers

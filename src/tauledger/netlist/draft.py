@@ -64,7 +64,7 @@ class Draft(Struct):
     """
 
     nodes: list[str] = field(default_factory=lambda: [GROUND])
-    numbers: dict[str, int] = field(default_factory=lambda: {GROUND: 0})
+    numbers: dict[str, int] = field(default_factory=lambda: {GROUND: 0, "gnd": 0})
     rows: list[Row | Block] = field(default_factory=list)
     elements: list[Element] = field(default_factory=list)
     models: dict[str, Model] = field(default_factory=dict)

@@ -52,20 +52,21 @@ def assemble(text: str, *, file: int, path: str, start: int = 0) -> Assembled:
         pieces.clear()
 
     at = sum(len(line) + 1 for line in lines[:start])
-    behind = start
-    for number, line in enumerate(lines[start:], start + 1):
-        begin, at = at, at + len(line) + 1
-        if number <= behind:
-            continue
+    number = start
+    while number < len(lines):
+        line = lines[number]
         if line[:1] in _PLAIN and script is None and not joined:
-            run = run_at(text, begin, file=file, line=number)
-            if run is not None and _continued(lines, number - 1 + run.count):
+            run = run_at(text, at, file=file, line=number + 1)
+            if run is not None and _continued(lines, number + run.count):
                 run = without_last(run)
             if run is not None:
                 close()
                 cards.append(run)
-                behind = number - 1 + run.count
+                number += run.count
+                at += len(run.text)
                 continue
+        number += 1
+        at += len(line) + 1
         content = line.strip()
         if script is not None:
             if content[:5].lower() == ".endc":

@@ -23,7 +23,9 @@ _VALUE = r"[+-]?+(?:\d++\.?+\d*+|\.\d++)(?:[eE][+-]?+\d{1,9}+)?+[A-Za-z]*+"
 _LINE = rf"{_NAME}[ \t]++{_NODE}[ \t]++{_NODE}[ \t]++{_VALUE}[ \t]*+(?:\n|\Z)"
 _RUN = re.compile(rf"(?:(?=[RCLrcl]){_LINE})++", re.ASCII)
 
-_SCALES = {"k": "e3", "m": "e-3", "u": "e-6", "n": "e-9", "p": "e-12", "f": "e-15", "g": "e9", "t": "e12"}
+# A suffix at the end of a number; meg before its g.
+_SCALES = {"meg\n": "e6\n", "k\n": "e3\n", "m\n": "e-3\n", "u\n": "e-6\n", "n\n": "e-9\n", "p\n": "e-12\n"}
+_SCALES |= {"f\n": "e-15\n", "g\n": "e9\n", "t\n": "e12\n"}
 
 
 class Run(Struct, frozen=True):
@@ -66,8 +68,6 @@ def without_last(run: Run) -> Run | None:
 def columns(run: Run) -> Columns:
     """Take a run apart."""
     words, folded = run.text.split(), run.text.lower().split()
-    texts = folded[3::4]
-    known = {text: _value(text) for text in set(texts)}
     return Columns(
         names=words[0::4],
         a=words[1::4],
@@ -75,20 +75,20 @@ def columns(run: Run) -> Columns:
         folded_names=folded[0::4],
         folded_a=folded[1::4],
         folded_b=folded[2::4],
-        values=[known[text] for text in texts],
+        values=_values(folded[3::4]),
     )
 
 
-def _value(text: str) -> float:
-    """Read a number that the pattern has let pass: mostly a decimal with at most one letter behind it."""
-    scale = _SCALES.get(text[-1])
-    if scale is None and text[-1] in "0123456789.":
-        return float(text)
-    if scale is not None and text[-2] in "0123456789." and "e" not in text:
-        return float(text[:-1] + scale)
-    number = read_number(text)
-    assert number is not None
-    return number.value
+def _values(texts: list[str]) -> list[float]:
+    """Read numbers that the pattern has let pass: all at once where no unit stands behind a suffix."""
+    joined = "\n".join([*texts, ""])
+    for suffix, exponent in _SCALES.items():
+        joined = joined.replace(suffix, exponent)
+    try:
+        return list(map(float, joined.split()))
+    except ValueError:
+        known = {text: read_number(text) for text in set(texts)}
+        return [number.value for number in map(known.__getitem__, texts) if number is not None]
 
 
 def row(run: Run, number: int) -> tuple[str, int]:
