@@ -60,9 +60,10 @@ def lower_rows(bands: Bands, devices: tuple[Device, ...]) -> tuple[LowerRow, ...
         if a == b:
             continue
         found.append(_row(bands, circuit, (a, b), tuple(names), sum(farad[name] for name in names)))
+    setting = _setting(bands) if bands.gain_setting else ()
     scale = sum(abs(weight * row.edge_exact_hz) for row, weight in found)
-    rows = tuple(_judged(row, weight, scale) for row, weight in found)
-    return (*rows, *_gain_rows(bands)) if bands.gain_setting else rows
+    scale += sum(abs(constant.weight * constant.edge_hz) for constant in setting)
+    return (*(_judged(row, weight, scale) for row, weight in found), *map(_gain_row, setting))
 
 
 def _row(
@@ -91,22 +92,22 @@ def _row(
     return row, 1.0 - passed
 
 
-def _gain_rows(bands: Bands) -> tuple[LowerRow, ...]:
-    """Give a row for every capacitor that sets the gain: what it holds of the poles below mid-band."""
-    return tuple(
-        LowerRow(
-            parts=constant.names,
-            title=f"gain-setting {' ‖ '.join(constant.names)}",
-            farad=constant.value,
-            resistance=_solved(constant.resistance_ohm, f"its part of the poles below mid-band, {_hertz(constant)}"),
-            resistance_exact_ohm=constant.resistance_ohm,
-            edge_hand_hz=constant.edge_hz,
-            edge_exact_hz=constant.edge_hz,
-            zero_hz=constant.zero_hz,
-            in_path=constant.in_path and constant.edge_hz > 0.0,
-        )
-        for constant in short_constants(bands).parts
-        if bands.gain_setting.issuperset(constant.names)
+def _setting(bands: Bands) -> tuple[ShortConstant, ...]:
+    return tuple(row for row in short_constants(bands).parts if bands.gain_setting.issuperset(row.names))
+
+
+def _gain_row(constant: ShortConstant) -> LowerRow:
+    """Give the row of capacitors that set the gain: what they hold of the poles below mid-band."""
+    return LowerRow(
+        parts=constant.names,
+        title=f"gain-setting {' ‖ '.join(constant.names)}",
+        farad=constant.value,
+        resistance=_solved(constant.resistance_ohm, f"its part of the poles below mid-band, {_hertz(constant)}"),
+        resistance_exact_ohm=constant.resistance_ohm,
+        edge_hand_hz=constant.edge_hz,
+        edge_exact_hz=constant.edge_hz,
+        zero_hz=constant.zero_hz,
+        in_path=constant.in_path and constant.edge_hz > 0.0,
     )
 
 
