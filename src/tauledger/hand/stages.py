@@ -80,9 +80,18 @@ def stage_rows(bands: Bands, devices: tuple[Device, ...]) -> tuple[StageRow, ...
 
 def _order(circuit: EquivalentCircuit, a: str, b: str) -> int:
     """Order two nodes that all signal crosses: driven from the earlier one alone, the later one moves as it does."""
-    forward = abs(circuit.gain(a, b) / _ratio(circuit, a, b) - 1.0)
-    backward = abs(circuit.gain(b, a) / _ratio(circuit, b, a) - 1.0)
+    forward = abs(_driven(circuit, a, b) - 1.0)
+    backward = abs(_driven(circuit, b, a) - 1.0)
     return -1 if forward < backward else 1
+
+
+def _driven(circuit: EquivalentCircuit, start: str, end: str) -> complex:
+    """Give the gain driven from `start` over the ratio of the signal there, complex where capacitors set the gain."""
+    if not circuit.s_mid:
+        return complex(circuit.gain(start, end) / _ratio(circuit, start, end))
+    i, j = circuit.row[start], circuit.row[end]
+    gain = complex(circuit.whole[j, i] / circuit.whole[i, i])
+    return gain * complex(circuit.voltage[i]) / complex(circuit.voltage[j])
 
 
 def _ratio(circuit: EquivalentCircuit, before: str, node: str) -> float:
