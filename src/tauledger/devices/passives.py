@@ -88,7 +88,7 @@ RESISTOR = Family(
     model_types=("r", "res"),
     levels=(1,),
     instance_parameters=names("value ac m scale tc1 tc2 tce temp dtemp l w"),
-    model_parameters=names("rsh narrow dw dlr dl short tc1 tc2 tce defw defl l kf af tnom r res"),
+    model_parameters=names("rsh narrow dw dlr dl short tc1 tc2 tce defw defl l w kf af tnom r res tc1r tc2r bv_max lf wf ef"),
     model_optional=True,
 )
 CAPACITOR = Family(
@@ -101,7 +101,7 @@ CAPACITOR = Family(
     model_types=("c", "cap"),
     levels=(1,),
     instance_parameters=names("value m scale tc1 tc2 temp dtemp l w"),
-    model_parameters=names("cap cj cjsw defw defl narrow short del tc1 tc2 tnom di thick"),
+    model_parameters=names("cap cj cjsw defw defl narrow short del tc1 tc2 tnom di thick l w scale m bv_max"),
     model_optional=True,
 )
 INDUCTOR = Family(
