@@ -14,3 +14,8 @@ def engine() -> Iterator[Engine]:
     """The engine, started once; every test loads circuits of its own into it."""
     with start_engine(timeout_s=30.0) as started:
         yield started
+
+
+def pytest_addoption(parser: pytest.Parser) -> None:
+    """--write-tables: print the tables that DEVELOPERS.md keeps."""
+    parser.addoption("--write-tables", action="store_true", help="print the tables that DEVELOPERS.md keeps")

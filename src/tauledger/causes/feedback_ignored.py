@@ -31,7 +31,7 @@ def loop_ignored(evidence: Evidence) -> Cause | None:
     effect = _effect(evidence, lambda line: line.resistance.rule_ohm or line.resistance.ohm, lambda term: term.factor)
     if not found or effect is None:
         return None
-    row, line = max(found, key=lambda entry: abs(entry[1].time_constant_s))
+    row, line = max(found, key=lambda entry: abs(_changes(entry[1])))
     seen = line.resistance
     rule_ohm = seen.rule_ohm or math.nan
     loop = "" if seen.loop_gain is None else f", {seen.rule}, T = {seen.loop_gain:.3g}"
@@ -79,6 +79,12 @@ def positive_gain_bridging(evidence: Evidence) -> Cause | None:
         numbers=(NamedNumber("K", term.gain.real, ""),),
         on_paper=True,
     )
+
+
+def _changes(line: InnerLine) -> float:
+    """Give how much longer the time constant of a line is by looking in alone, s."""
+    rule_ohm = line.resistance.rule_ohm
+    return 0.0 if rule_ohm is None else (rule_ohm - line.resistance.ohm) * line.capacitance_f
 
 
 def _effect(

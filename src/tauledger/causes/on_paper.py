@@ -14,6 +14,7 @@ import numpy as np
 from tauledger.causes.cause import Cause
 from tauledger.causes.evidence import Evidence, hand_differs
 from tauledger.circuit import GROUND
+from tauledger.devices.family import Device, Terminal
 from tauledger.devices.parts import Part
 from tauledger.network.assemble import Network
 from tauledger.network.recompute import scaled
@@ -107,8 +108,13 @@ def _degenerating(evidence: Evidence) -> list[Part]:
         outer = next((t.outer for t in device.terminals if t.inner == cell.common), cell.common)
         collector = next((t.outer for t in device.terminals if t.inner == cell.output), cell.output)
         here = bands.merged.get(outer, outer)
-        # a follower's collector rests: its emitter resistor is its load
-        if here == GROUND or not _passed(evidence, bands.merged.get(collector, collector)):
+        # a follower's collector rests, and a compound follower's second collector is its emitter: there R_E is the load
+        leaves = {bands.merged.get(t.outer, t.outer) for other in evidence.devices for t in _output(other)}
+        if (
+            here == GROUND
+            or here in {*leaves, *_port(evidence)}
+            or not _passed(evidence, bands.merged.get(collector, collector))
+        ):
             continue
         for part in bands.upper.parts:
             ends = set(part.nodes)
@@ -116,6 +122,16 @@ def _degenerating(evidence: Evidence) -> list[Part]:
             if grounded and cell.gm > 0.1 * part.value:
                 found[part.name] = part
     return list(found.values())
+
+
+def _output(device: Device) -> list[Terminal]:
+    cell = device.cell
+    return [] if cell is None else [t for t in device.terminals if t.inner == cell.output]
+
+
+def _port(evidence: Evidence) -> set[str]:
+    port = evidence.bands.network.port
+    return {evidence.bands.merged.get(node, node) for node in (port.plus, port.minus)}
 
 
 def _passed(evidence: Evidence, node: str) -> bool:

@@ -29,31 +29,41 @@ def arrangement(
     for other in circuit.cells:
         if other is cell:
             continue
-        into, out, common = (_outer(circuit, end) for end in (cell.control, cell.output, cell.common))
-        o_out, o_common = _outer(circuit, other.output), _outer(circuit, other.common)
+        into, out, common = (outer(circuit, end) for end in (cell.control, cell.output, cell.common))
+        o_out, o_common = outer(circuit, other.output), outer(circuit, other.common)
         if o_common == into != GROUND and o_out == out:
             told.append(f"Darlington with {other.owner}")
         elif o_out == into != GROUND and o_common == out != GROUND:
             told.append(f"complementary pair with {other.owner}")
         elif _shares_tail(circuit, cell, other) and common != node:
             told.append(f"{COUPLED.get(cell.words[0], COUPLED['input'])} with {other.owner}")
-        elif o_out == node and _outer(circuit, cell.output) == node:
+        elif o_out == node and outer(circuit, cell.output) == node:
             role = role_of(circuit, other)
             if role in ("diode-connected", "current mirror output"):
                 told.append(f"{'diode' if role == 'diode-connected' else 'mirror'} load {other.owner}")
             elif role == "without signal":
                 told.append(f"active load {other.owner}")
-        elif o_common == node == common and FOLLOWER in role_of(circuit, other) and FOLLOWER in role_of(circuit, cell):
+        elif {FOLLOWER in role_of(circuit, one) for one in (cell, other)} == {True} and all(
+            node in (end, *beyond(circuit, end)) for end in (common, o_common)
+        ):
             told.append(f"push-pull with {other.owner}")
     return (*dict.fromkeys(told), *_feedback(circuit, cell, node, before, earlier))
+
+
+def beyond(circuit: EquivalentCircuit, node: str) -> tuple[str, ...]:
+    """Give the nodes that one resistor separates from a node: a follower's output behind its emitter resistor."""
+    if node == GROUND:
+        return ()
+    far = (circuit.resistors[k].other(node) for k in circuit.resistors_at.get(node, ()))
+    return tuple(end for end in far if end != GROUND)
 
 
 def bootstrapped(circuit: EquivalentCircuit, node: str, far: str) -> bool:
     """Say whether a transistor makes the far end of a resistor follow the node by more than half: it carries less."""
     if far == GROUND or not FOLLOWS < circuit.gain(node, far) < 1.0:
         return False
-    following = [cell for cell in circuit.cells if _outer(circuit, leaves_at(circuit, cell) or GROUND) == far]
-    return any(_outer(circuit, cell.control) == node for cell in following)
+    following = [cell for cell in circuit.cells if outer(circuit, leaves_at(circuit, cell) or GROUND) == far]
+    return any(outer(circuit, cell.control) == node for cell in following)
 
 
 def follows_as_one(around: Sequence[str]) -> bool:
@@ -69,16 +79,16 @@ def _feedback(
     if before is not None:
         targets[before] = f"to {before}"
     for one in (*earlier, cell):
-        targets.setdefault(_outer(circuit, one.control), f"to the {one.words[0]} of {one.owner}")
+        targets.setdefault(outer(circuit, one.control), f"to the {one.words[0]} of {one.owner}")
     for one in earlier:
-        targets.setdefault(_outer(circuit, one.common), f"to the {one.words[1]} of {one.owner}")
-    ends = dict.fromkeys((node, _outer(circuit, cell.common)))
+        targets.setdefault(outer(circuit, one.common), f"to the {one.words[1]} of {one.owner}")
+    ends = dict.fromkeys((node, outer(circuit, cell.common)))
     told = []
     for end in ends:
         for k in circuit.resistors_at.get(end, ()) if end != GROUND else ():
             resistor = circuit.resistors[k]
             far = resistor.other(end)
-            forward = far == before and leaves_at(circuit, cell) != end and end == node
+            forward = far == before and outer(circuit, leaves_at(circuit, cell) or GROUND) != end and end == node
             if far in targets and far not in (GROUND, end) and not forward and resistor.name[:2] not in ("r_", "(r"):
                 told.append(f"feedback {targets[far]} through {resistor.name}")
     return list(dict.fromkeys(told))
@@ -86,7 +96,7 @@ def _feedback(
 
 def _shares_tail(circuit: EquivalentCircuit, cell: Cell, other: Cell) -> bool:
     """Two cells of one kind on one live common node, directly or each through one resistor, driven at two nodes."""
-    if cell.words != other.words or _outer(circuit, cell.control) == _outer(circuit, other.control) != GROUND:
+    if cell.words != other.words or outer(circuit, cell.control) == outer(circuit, other.control) != GROUND:
         return False
     tails = [_tail(circuit, one) for one in (cell, other)]
     return tails[0] == tails[1] != GROUND
@@ -109,5 +119,6 @@ def device_of(name: str) -> str:
     return inner.group(1) if inner else name
 
 
-def _outer(circuit: EquivalentCircuit, node: str) -> str:
+def outer(circuit: EquivalentCircuit, node: str) -> str:
+    """Give the netlist's node of a device's terminal for its inner node; any other node as it is."""
     return next((t.outer for t in circuit.terminals if t.inner == node and t.outer != node), node)

@@ -9,7 +9,7 @@ import numpy as np
 
 from tauledger.circuit import GROUND
 from tauledger.devices.family import Device
-from tauledger.hand.arrangements import arrangement, bootstrapped, device_of, follows_as_one
+from tauledger.hand.arrangements import arrangement, beyond, bootstrapped, device_of, follows_as_one, outer
 from tauledger.hand.elements import Cell
 from tauledger.hand.equivalent import EquivalentCircuit, upper_circuit
 from tauledger.hand.estimate import StageRow
@@ -164,8 +164,18 @@ def _source_cell(circuit: EquivalentCircuit, group: Group, before: str | None) -
         for cell in (circuit.cells[k] for k in at)
         if leaves_at(circuit, cell) in group.nodes and role_of(circuit, cell) != "diode-connected"
     ]
+    if not leaving and before is not None:
+        leaving = [cell for cell in circuit.cells if _follows_into(circuit, cell, group, before)]
     near = [cell for cell in leaving if before in (cell.control, cell.common)]
     return next(iter(near or leaving), None)
+
+
+def _follows_into(circuit: EquivalentCircuit, cell: Cell, group: Group, before: str) -> bool:
+    """Whether a follower driven at `before` leads to the row through its emitter (source) resistor."""
+    left_at = leaves_at(circuit, cell)
+    if left_at is None or left_at != cell.common or outer(circuit, cell.control) != before:
+        return False
+    return bool({*beyond(circuit, outer(circuit, left_at))} & {*group.nodes})
 
 
 def _elements(circuit: EquivalentCircuit, node: str) -> tuple[str, ...]:
