@@ -35,11 +35,11 @@ class Mirror(Struct, frozen=True):
 def find_mirror(circuit: EquivalentCircuit) -> Mirror | None:
     """Give the halves of a circuit whose nodes move in opposite phase, the half of the output's plus node first.
 
-    None where the drive is not balanced, an element crosses to another node than its own image, or the halves differ
-    by more than 1e-6.
+    None where the drive is not balanced, an element crosses to another node than its own image, the halves differ by
+    more than 1e-6, or capacitors set the gain (their circuit is complex, and taken whole).
     """
     plus = circuit.output_hand[0]
-    if plus == GROUND or circuit.floating:
+    if plus == GROUND or circuit.floating or circuit.s_mid:
         return None
     opposite = _opposite(circuit)
     if opposite is None or plus not in opposite or opposite[plus] == plus:
