@@ -88,7 +88,9 @@ RESISTOR = Family(
     model_types=("r", "res"),
     levels=(1,),
     instance_parameters=names("value ac m scale tc1 tc2 tce temp dtemp l w"),
-    model_parameters=names("rsh narrow dw dlr dl short tc1 tc2 tce defw defl l w kf af tnom r res tc1r tc2r bv_max lf wf ef"),
+    model_parameters=names(
+        "rsh narrow dw dlr dl short tc1 tc2 tce defw defl l w kf af tnom r res tc1r tc2r bv_max lf wf ef"
+    ),
     model_optional=True,
 )
 CAPACITOR = Family(
