@@ -15,11 +15,10 @@ def changed(review: Review) -> Section:
     if not review.settings:
         return Section(())
     told = ", ".join(f"{setting.name} = {setting.value:.6g}" for setting in review.settings)
-    moved = [figure for figure in review.moved if not _same(figure)]
-    still = [figure.figure for figure in review.moved if _same(figure)]
+    moved = [figure for figure in review.moved if not same(figure)]
+    still = [figure.figure for figure in review.moved if same(figure)]
     rows = tuple(
-        Row((figure.figure, _shown(figure, figure.before), _shown(figure, figure.after), _by(figure)))
-        for figure in moved
+        Row((figure.figure, shown(figure, figure.before), shown(figure, figure.after), by(figure))) for figure in moved
     )
     blocks: list[Block] = [Prose(f"SET {told}", style=HEADING)]
     if rows:
@@ -37,13 +36,15 @@ def read_past(review: Review) -> Section:
     return Section((Prose("READ PAST", style=HEADING), *lines))
 
 
-def _same(figure: MovedFigure) -> bool:
+def same(figure: MovedFigure) -> bool:
+    """Whether a figure stands still."""
     if figure.before is None or figure.after is None:
         return figure.before is figure.after
     return abs(figure.after - figure.before) <= _STANDS_STILL * max(abs(figure.before), abs(figure.after))
 
 
-def _shown(figure: MovedFigure, value: float | None) -> str:
+def shown(figure: MovedFigure, value: float | None) -> str:
+    """Write a value of a figure with its unit."""
     if value is None:
         return NO_NUMBER
     if figure.unit == "dB":
@@ -51,7 +52,7 @@ def _shown(figure: MovedFigure, value: float | None) -> str:
     return f"{value:+.1f}°" if figure.unit == "deg" else number(value, figure.unit)
 
 
-def _by(figure: MovedFigure) -> str:
+def by(figure: MovedFigure) -> str:
     """Word the change: in dB and degrees as a difference, else in per cent."""
     if figure.before is None or figure.after is None:
         return NO_NUMBER

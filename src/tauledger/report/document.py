@@ -5,11 +5,12 @@ HTML and Markdown print the same document; a figure is named here and drawn wher
 
 from __future__ import annotations
 
+from collections.abc import Iterable
 from typing import Literal
 
 from msgspec import Struct
 
-from tauledger.record import Review
+from tauledger.record import CauseFacts, Review
 from tauledger.report.sentences import (
     Answer,
     KeyFigure,
@@ -20,8 +21,10 @@ from tauledger.report.sentences import (
     headline,
     key_figures,
     note_text,
+    plain,
+    sentence,
 )
-from tauledger.report.tables import lower, roots, setting, upper, way
+from tauledger.report.tables import lower, outside, roots, setting, upper, way
 from tauledger.report.tables.grid import Grid
 from tauledger.report.tables.working import Lines, working
 from tauledger.report.wording import EDGE, fraction, move, withheld
@@ -91,12 +94,14 @@ def document(review: Review) -> Document:
     """Arrange a review for reading."""
     sections = (
         _drive(review),
+        _set(review),
         _budget(review),
         _time(review),
         _shares(review),
         _way(review),
         _bode(review),
         _causes(review),
+        _own(review),
         _lower(review),
         _stages(review),
         _devices(review),
@@ -199,12 +204,31 @@ def _bode(review: Review) -> Section:
 def _causes(review: Review) -> Section:
     if withheld(review):
         return Section("causes", "", ())
-    items = tuple(
+    differ = _items([cause for cause in review.causes if not cause.on_paper], review)
+    kept = _items([cause for cause in review.causes if cause.on_paper], review)
+    blocks: list[Block] = [Items(differ) if differ else Prose("Nothing of note above 2 %.")]
+    if kept:
+        blocks += [Prose("What paper must not leave out; the figures by hand here have it:"), Items(kept)]
+    return Section("causes", "Why paper and simulation differ", tuple(blocks))
+
+
+def _items(causes: Iterable[CauseFacts], review: Review) -> tuple[Item, ...]:
+    return tuple(
         Item(f"{EDGE.get(cause.quantity, cause.quantity)} {move(cause.effect)}", cause_text(cause, review))
-        for cause in review.causes
+        for cause in causes
     )
-    block: Block = Items(items) if items else Prose("Nothing of note above 2 %.")
-    return Section("causes", "Why paper and simulation differ", (block,))
+
+
+def _own(review: Review) -> Section:
+    if not review.paper:
+        return Section("own", "", ())
+    items = tuple(Item(name, sentence(plain(says, review))) for name, says in outside.verdicts(review))
+    blocks: tuple[Block, ...] = (outside.own_figures(review), *((Items(items),) if items else ()))
+    return Section("own", "Your own figures", blocks)
+
+
+def _set(review: Review) -> Section:
+    return Section("set", "What was set", (outside.set_values(review),) if review.settings else ())
 
 
 def _lower(review: Review) -> Section:

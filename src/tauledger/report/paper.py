@@ -6,7 +6,7 @@ from tauledger.record import PaperFigure, Review
 from tauledger.report.layout import Block, Prose, Row, Section, Table
 from tauledger.report.wording import move, number, retitled, symbol
 
-_AGREES = 0.02
+AGREES = 0.02
 
 
 def own_page(review: Review) -> Section:
@@ -16,7 +16,7 @@ def own_page(review: Review) -> Section:
     rows = tuple(
         Row(
             (
-                retitled(_title(figure), review.parts),
+                retitled(figure_title(figure), review.parts),
                 number(figure.yours, figure.unit),
                 number(figure.hand, figure.unit),
                 number(figure.exact, figure.unit),
@@ -27,12 +27,13 @@ def own_page(review: Review) -> Section:
     )
     blocks: list[Block] = [Table("lrrrr", ("YOUR PAGE", "yours", "hand", "exact", "off by"), rows)]
     for figure in review.paper:
-        if figure.off is None or abs(figure.off) > _AGREES:
+        if figure.off is None or abs(figure.off) > AGREES:
             says = retitled(figure.says, review.parts)
-            blocks.append(Prose(f"{retitled(_title(figure), review.parts)}: {says}.", lead="  ", hang=4))
+            blocks.append(Prose(f"{retitled(figure_title(figure), review.parts)}: {says}.", lead="  ", hang=4))
     return Section(tuple(blocks), major=True)
 
 
-def _title(figure: PaperFigure) -> str:
+def figure_title(figure: PaperFigure) -> str:
+    """Name a figure of the page as the trade does: "C_μ of Q1"."""
     key, of, device = figure.title.partition(" of ")
     return f"{symbol(key)}{of}{device}" if figure.key == key else figure.title

@@ -224,7 +224,8 @@ def _does_paper_agree(review: Review) -> str:
     if best is not None and best.method != "sum of time constants" and best.difference is not None:
         text += f"; the method to use here, {best.method}, {move(best.difference)}"
     text += "."
-    cause = next((cause for cause in review.causes if EDGE.get(cause.quantity, cause.quantity) == "f_H"), None)
+    differ = (cause for cause in review.causes if not cause.on_paper)
+    cause = next((cause for cause in differ if EDGE.get(cause.quantity, cause.quantity) == "f_H"), None)
     if cause is not None:
         text += f" Largest cause ({move(cause.effect)}): {plain(cause.says, review)}."
     return text

@@ -11,6 +11,7 @@ from tauledger.record import PartRow, Review
 from tauledger.report.charts.style import blank, light, marked, quiet, styled, to_svg
 from tauledger.report.tables.upper import by_share, counting_nodes, term_seconds, whole_s
 from tauledger.report.wording import fraction, number, part_titles
+from tauledger.report.working import node_title
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -39,8 +40,9 @@ class TimeGroup(Struct, frozen=True):
 def time_groups(review: Review) -> tuple[TimeGroup, ...]:
     """Put every open capacitance in the path under the node where most of its time constant by hand stands.
 
-    A capacitance between two nodes has one bar, for both its ends: R by hand times C beside R exact times C. Those
-    below 0.4 % of the sum are left out.
+    A capacitance between two nodes has one bar, for both its ends: R by hand times C beside R exact times C. In a
+    balanced circuit the bars are those of the half circuit, and exact is what the capacitance and its image take of the
+    group delay. Those below 0.4 % of the sum are left out.
     """
     titles = part_titles(review.parts)
     rows = {part.name: part for part in review.parts if part.klass == "open" and part.in_path}
@@ -48,7 +50,7 @@ def time_groups(review: Review) -> tuple[TimeGroup, ...]:
     home: dict[str, tuple[float, str]] = {}
     hand: dict[str, float] = {}
     for node in review.nodes:
-        for term in node.working.capacitances if node.working else ():
+        for term in node.working.capacitances if node.working and not node.second else ():
             seconds = term_seconds(term, node)
             hand[term.part] = hand.get(term.part, 0.0) + seconds
             if abs(seconds) > home.get(term.part, (0.0, ""))[0]:
@@ -57,10 +59,20 @@ def time_groups(review: Review) -> tuple[TimeGroup, ...]:
     for node in counting_nodes(review):
         here = [name for name, (_, at) in home.items() if at == node.name and abs(hand[name]) >= least and name in rows]
         here.sort(key=lambda name: -abs(hand[name]))
-        bars = tuple(TimeBar(name, titles[name], hand[name], rows[name].time_constant_s) for name in here)
+        bars = tuple(TimeBar(name, titles[name], hand[name], _exact_s(rows[name], review)) for name in here)
         if bars:
-            groups.append(TimeGroup(node.title, bars))
+            groups.append(TimeGroup(node_title(node), bars))
     return tuple(groups)
+
+
+def _exact_s(part: PartRow, review: Review) -> float | None:
+    """Give R·C of a part; in a balanced circuit, where its R holds for one half alone, its part of the group delay."""
+    second = {member for node in review.nodes if node.second for member in node.members}
+    if not second or part.time_constant_s is None or part.weight is None:
+        return part.time_constant_s
+    first = {member for node in review.nodes if node.image and not node.second for member in node.members}
+    is_its_own_image = any(end in first for end in part.nodes) and any(end in second for end in part.nodes)
+    return part.weight * part.time_constant_s * (1.0 if is_its_own_image else 2.0)
 
 
 def time_chart(review: Review) -> str:

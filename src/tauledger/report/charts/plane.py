@@ -3,13 +3,19 @@
 from __future__ import annotations
 
 import math
+from typing import TYPE_CHECKING
 
 from tauledger.record import Review
 from tauledger.report.charts.style import blank, light, styled, to_svg
 from tauledger.report.tables.roots import Root, near_roots
 from tauledger.report.wording import number
 
+if TYPE_CHECKING:
+    from matplotlib.axes import Axes
+
 INNERMOST = 0.6
+# Marks closer than this part of the picture have no room for both their names side by side.
+CLOSE = 0.035
 
 
 def plane_chart(review: Review) -> str:
@@ -36,7 +42,7 @@ def plane_chart(review: Review) -> str:
 
         right_edge = max(right + 0.6, 0.3 * outermost)
         span = outermost + 0.25 + right_edge
-        figure = blank(min(5.5, max(1.9, 7.2 * 2.0 * half / span + 0.3)))
+        figure = blank(min(4.6, max(1.9, 7.2 * 2.0 * half / span + 0.3)))
         axes = figure.add_subplot()
         every = 1 if last - first <= 7 else 2
         for decade in range(first, last + 1):
@@ -45,11 +51,18 @@ def plane_chart(review: Review) -> str:
             if (decade - first) % every == 0:
                 label = number(10.0**decade, "Hz", 1)
                 axes.annotate(
-                    label, (-radius, -half), (0, 2), textcoords="offset points", ha="center", va="bottom", fontsize=8
+                    label,
+                    (-radius, 0.0),
+                    (0, -7),
+                    textcoords="offset points",
+                    ha="center",
+                    va="top",
+                    fontsize=7.5,
+                    color=light("muted"),
                 )
         axes.axhline(0.0, color=light("muted"), linewidth=0.8)
         axes.axvline(0.0, color=light("muted"), linewidth=0.8)
-        _marks(axes, placed)
+        _marks(axes, placed, close=CLOSE * span)
         axes.set_xlim(-outermost - 0.25, right_edge)
         axes.set_ylim(-half, half)
         axes.set_aspect("equal")
@@ -60,16 +73,13 @@ def plane_chart(review: Review) -> str:
         return to_svg(figure, key="plane", title=f"Poles and zeros in the s-plane: {told}")
 
 
-def _marks(axes: object, placed: list[tuple[Root, float, float]]) -> None:
-    from matplotlib.axes import Axes
-
-    assert isinstance(axes, Axes)
+def _marks(axes: Axes, placed: list[tuple[Root, float, float]], *, close: float) -> None:
     at_origin = [root.name for root, x, y in placed if x == 0.0 and y == 0.0]
     level, before = 0, None
     for root, x, y in sorted(placed, key=lambda entry: entry[1]):
         if x == 0.0 and y == 0.0 and root.name != at_origin[0]:
             continue
-        level = 1 - level if before is not None and y == 0.0 and x - before < 0.3 else 0
+        level = 1 - level if before is not None and y == 0.0 and x - before < close else 0
         before = x if y == 0.0 else before
         name = ", ".join(at_origin) if x == 0.0 and y == 0.0 else root.name
         for height in {y, -y}:
@@ -83,7 +93,5 @@ def _marks(axes: object, placed: list[tuple[Root, float, float]]) -> None:
                 color=light("exact" if root.is_pole else "hand"),
                 linestyle="none",
             )
-        upwards = -8 if level else 8
-        axes.annotate(
-            name, (x, y), (0, upwards), textcoords="offset points", ha="center", va="top" if level else "bottom"
-        )
+        upwards = 19 if level else 8
+        axes.annotate(name, (x, y), (0, upwards), textcoords="offset points", ha="center", va="bottom")

@@ -28,7 +28,7 @@ from tauledger.report.tables.upper import term_seconds
 from tauledger.report.wording import number, part_titles
 
 TOP, BOTTOM = 50.0, 176.0
-COLUMN, MARGIN = 124.0, 22.0
+COLUMN, MARGIN = 136.0, 22.0
 MOST_CAPACITORS = 3
 SMALL = 0.03
 
@@ -93,7 +93,7 @@ def _resistance(node: NodeRow) -> str:
 
 
 def _svg(pieces: list[str], x: float, *, key: str, title: str) -> str:
-    width, height = x + 8.0, BOTTOM + 26.0
+    width, height = x + 24.0, BOTTOM + 26.0
     return (
         f'<svg class="circuit" viewBox="0 0 {width:g} {height:g}" style="--width: {width:g}px" role="img" '
         f'aria-labelledby="{key}-title"><title id="{key}-title">{escape(title)}</title>{"".join(pieces)}</svg>\n'
@@ -150,7 +150,7 @@ def _elements(node: NodeRow, review: Review) -> list[Element]:
     for term in shown:
         counts = number(term.farad * term.factor, "F", 3)
         plain = abs(term.factor - 1.0) < 5e-4
-        words = (counts,) if plain else (f"{number(term.farad, 'F', 3)} × {term.factor:.4g}", f"= {counts}")
+        words = (counts,) if plain else (f"{number(term.farad, 'F', 3)} × {term.factor:.3g}", f"= {counts}")
         elements.append(Element("capacitor", (titles.get(term.part, term.part), *words), term.part))
     rest = ordered[len(shown) :]
     if rest:

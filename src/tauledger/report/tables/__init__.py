@@ -6,5 +6,6 @@ working.py  one signal node worked out
 lower.py    coupling and bypass capacitors
 roots.py    poles and zeros with the names that charts and table share
 way.py      estimates from the lowest node to the simulation, methods, reruns
+outside.py  figures of a page of one's own, values set
 setting.py  drive and load, stages, devices, lines of the netlist, versions
 """
