@@ -157,4 +157,32 @@ R1 y vdd 1k
 R2 y sub! 2k
 .ends
 """,
+    "where ngspice surprises": """surprises
+.param neg=-2 p=1 p=2
+V1 in 0 1 AC 1
+R1 in a 1k5
+R2 a 0 2n2F m=1e12
+R3 in b {pow(neg,2)*1k}
+R4 b 0 {1k*(neg^3)}
+R5 in c {pwr(neg,3)*100 + 1mil*1meg}
+R6 c 0 {p*1k}
+R7 in d 1mil
+R8 d 0 1m
+R9 in e dup
+R10 e 0 {1k*(neg)**2}
+X1 in f pair
+R11 f 0 1k
+B1 g 0 v=pow(-2,3)+pwr(-2,3)
+R12 g 0 1k
+.model dup r rsh=1 l=10u w=1u
+.model dup r rsh=2 l=10u w=1u
+.subckt pair a y
+R1 a y 1k
+.ends
+.subckt pair a y
+R1 a y 2k
+.ends
+.end
+R13 f 0 3k
+""",
 }

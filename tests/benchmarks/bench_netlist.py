@@ -12,6 +12,7 @@ import statistics
 import subprocess
 import time
 import tracemalloc
+from collections.abc import Callable
 from pathlib import Path
 
 import pytest
@@ -57,9 +58,9 @@ def loaded(path: Path) -> None:
 
 @pytest.mark.parametrize("board", [ladder, stages])
 def test_reading_and_flattening_against_the_load_of_the_engine(
-    board: object, benchmark: BenchmarkFixture, tmp_path: Path
+    board: Callable[[Path], Path], benchmark: BenchmarkFixture, tmp_path: Path
 ) -> None:
-    assert callable(board)
+
     path = board(tmp_path / "board.cir")
     understood(path)
     ratios = []

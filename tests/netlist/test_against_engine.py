@@ -104,3 +104,23 @@ def test_a_note_says_where_a_given_value_was_read_in_the_called_subcircuit(tmp_p
     says = [note.says for note in elaborate(read(path), output="in").notes]
     assert says[0].startswith("p={a*40} is 280: ngspice takes a from the subcircuit")
     assert says[0].endswith("with the caller's it would be 40")
+
+
+def test_each_surprise_of_the_engine_has_its_note(tmp_path: Path) -> None:
+    path = tmp_path / "board.cir"
+    path.write_text(LANGUAGE["where ngspice surprises"])
+    notes = {(int(note.where.rpartition(":")[2]), note.says) for note in elaborate(read(path), purpose="reading").notes}
+    expected = {
+        4: "1k5 is 1k, as ngspice reads it: digits behind a suffix are dropped; if 1.5k is meant, write the point",
+        5: "2n2F is 2n, as ngspice reads it: digits behind a suffix are dropped; if 2.2nF is meant, write the point",
+        6: "pow(x,y) keeps the sign of x here, as ngspice does; in a behavioural source it takes |x|",
+        7: "(-2)^3 is taken as |x|^y, as ngspice does",
+        8: "pwr(x,y) takes |x| here, as ngspice does; in a behavioural source it keeps the sign of x",
+        13: "(-2)**2 is taken as |x|^y, as ngspice does",
+        19: "model dup is defined twice; the first definition counts, as in ngspice",
+        2: "parameter p is set again; the last value counts, as in ngspice",
+        25: "subcircuit pair is defined twice; the first definition counts, as in ngspice",
+        27: f"cards behind .end ({path}:26) are read, as ngspice does",
+    }
+    assert notes >= set(expected.items())
+    assert (8, "mil inside a formula is m (1e-3), as ngspice reads it; outside it is 25.4e-6") in notes

@@ -91,9 +91,7 @@ def understood(path: Path, text: str) -> str:
     return flat_netlist(circuit) + "\n".join(f"{note.where} {note.says}" for note in circuit.notes)
 
 
-@settings(
-    derandomize=True, max_examples=120, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture]
-)
+@settings(derandomize=True, max_examples=80, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
 @given(st.lists(ROWS, min_size=8, max_size=30), st.booleans())
 def test_runs_of_plain_lines_give_what_each_line_gives_by_the_grammar(
     tmp_path: Path, rows: list[tuple[str, str, str, str, str]], inside: bool

@@ -95,7 +95,9 @@ def assemble(text: str, *, file: int, path: str, start: int = 0) -> Assembled:
         body = body.removesuffix("\\\\").rstrip()
         column += len(body) - len(body.lstrip())
         body = body.lstrip()
-        control = next((index for index, character in enumerate(body) if unsafe(character)), None)
+        control = None
+        if not (body.isascii() and body.isprintable()):
+            control = next((index for index, character in enumerate(body) if unsafe(character)), None)
         if control is not None:
             message = f"control character U+{ord(body[control]):04X} in a card"
             faults.append(diagnostic(path, number, column + control + 1, line, message, "delete it"))

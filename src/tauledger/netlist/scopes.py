@@ -24,6 +24,8 @@ from tauledger.netlist.numbers import read_number
 MOST_NESTED_CALLS = 30
 MOST_CALLS = 50_000
 
+# What ngspice drops behind a suffix: 7 of 4k7, 2F of 2n2F.
+_DROPPED = re.compile(r"\d+[A-Za-z]*", re.ASCII)
 _MIL = re.compile(r"[\d.]mil", re.IGNORECASE)
 
 
@@ -139,11 +141,11 @@ def number_of(site: Site, value: Value, scope: Scope) -> float:
         raise site.fault(value, "a number is expected here, not text", "put a formula in braces: {..}")
     decimal = read_number(value.text)
     if decimal is not None:
-        if decimal.tail[:1].isdigit():
+        if _DROPPED.fullmatch(decimal.tail):
             head, tail = value.text[: -len(decimal.tail)], decimal.tail
-            hint = f"write the point: {_pointed(head, tail)} ({head} is what ngspice would read)"
-            raise site.fault(value, f"{value.text!r} has digits behind its suffix", hint)
-        if decimal.tail:
+            says = f"{value.text} is {head}, as ngspice reads it: digits behind a suffix are dropped"
+            scope.notes.append(ReadingNote(site.where, f"{says}; if {_pointed(head, tail)} is meant, write the point"))
+        elif decimal.tail:
             formula = decimal.tail[0] in "*/+-^%"
             hint = "a formula stands in braces: {..}" if formula else ""
             raise site.fault(value, f"{value.text!r} is not a number", hint)
@@ -158,9 +160,10 @@ def number_of(site: Site, value: Value, scope: Scope) -> float:
 
 
 def _pointed(head: str, tail: str) -> str:
-    """Turn 4k and 7 into 4.7k."""
+    """Turn 4k and 7 into 4.7k, 2n and 2F into 2.2nF."""
     digits = len(head.rstrip("abcdefghijklmnopqrstuvwxyzABCDEFGHIJKLMNOPQRSTUVWXYZµμ"))
-    return f"{head[:digits]}.{tail}{head[digits:]}"
+    unit = tail.lstrip("0123456789")
+    return f"{head[:digits]}.{tail[: len(tail) - len(unit)]}{head[digits:]}{unit}"
 
 
 def _work_out(scope: Scope, name: str) -> float:
