@@ -128,6 +128,7 @@ def neither_short_nor_open(evidence: Evidence) -> Note | None:
     """Capacitors that are neither clearly short nor clearly open at mid-band (0.3 < r < 0.95)."""
     low, high = HALF_SHORT
     capacitors = {part.name for part in evidence.bands.network.parts if part.kind == "capacitance"}
+    capacitors -= evidence.bands.gain_setting
     between = {name: ratio for name, ratio in evidence.bands.ratio.items() if name in capacitors and low < ratio < high}
     if not between:
         return None

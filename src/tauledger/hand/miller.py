@@ -66,6 +66,17 @@ def hand_gain(circuit: EquivalentCircuit, start: str, end: str) -> HandGain:
     return HandGain(exact, f"K = {plain(exact)}, solved{by_hand}", "solved")
 
 
+def signal_gain(circuit: EquivalentCircuit, start: str, end: str) -> float | None:
+    """Give v(end)/v(start) of the signal by hand where a chain of elements gives it within 1 %, else None.
+
+    For circuits in which capacitors set the gain, where K from real parts is no gain of a signal.
+    """
+    i, j = circuit.row[start], circuit.row[end]
+    exact = complex(circuit.voltage[j] / circuit.voltage[i])
+    tried = (_along(circuit, start, chain)[0] for chain in _chains(circuit, start, end))
+    return next((value for value in tried if abs(value - exact) <= ACCEPTED * abs(exact)), None)
+
+
 def miller_term(circuit: EquivalentCircuit, capacitor: Capacitor, node: str) -> MillerTerm:
     """Count one capacitance at one of its nodes: farad·(1 − K), or farad·(1 + 1/|A|) behind an inverting stage.
 

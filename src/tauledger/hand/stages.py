@@ -14,7 +14,7 @@ from tauledger.hand.elements import Cell
 from tauledger.hand.equivalent import EquivalentCircuit, upper_circuit
 from tauledger.hand.estimate import StageRow
 from tauledger.hand.looking_in import looking_in
-from tauledger.hand.miller import hand_gain
+from tauledger.hand.miller import hand_gain, signal_gain
 from tauledger.hand.mirror import find_mirror, half_circuit, same_size
 from tauledger.hand.nodes import Group, crossing, groups, node_name
 from tauledger.hand.roles import follower_of, leaves_at, role_of
@@ -53,7 +53,8 @@ def stage_rows(bands: Bands, devices: tuple[Device, ...]) -> tuple[StageRow, ...
             by_hand, exact = _from_source(bands, circuit, node)
         else:
             exact = _ratio(circuit, before, node)
-            by_hand = hand_gain(circuit, before, node).value
+            solved = signal_gain if circuit.s_mid else _hand_value
+            by_hand = solved(circuit, before, node)
         cell = _source_cell(circuit, group, before)
         around = () if cell is None else arrangement(circuit, cell, node, before, earlier)
         role = "passive" if cell is None else role_of(circuit, cell)
@@ -83,6 +84,10 @@ def _order(circuit: EquivalentCircuit, a: str, b: str) -> int:
     forward = abs(_driven(circuit, a, b) - 1.0)
     backward = abs(_driven(circuit, b, a) - 1.0)
     return -1 if forward < backward else 1
+
+
+def _hand_value(circuit: EquivalentCircuit, before: str, node: str) -> float | None:
+    return hand_gain(circuit, before, node).value
 
 
 def _driven(circuit: EquivalentCircuit, start: str, end: str) -> complex:
