@@ -9,9 +9,10 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Mapping
 
+from typing import TYPE_CHECKING
+
 from tauledger.circuit import Apply, Circuit, Current, Element, Formula, Model, Variable, Voltage
 from tauledger.devices.controlled import cell_of
-from tauledger.devices.derivative import Control, at_bias
 from tauledger.devices.family import Device, Family, Refusal, names, observe_nothing
 from tauledger.devices.parts import (
     Part,
@@ -27,6 +28,9 @@ from tauledger.devices.parts import (
 from tauledger.devices.temperature import polynomial_factor, temperature_rise
 from tauledger.solution import Bias
 
+if TYPE_CHECKING:
+    from tauledger.devices.derivative import Control
+
 WORDS = {
     "B": "behavioural source",
     "E": "voltage-controlled voltage source",
@@ -39,6 +43,8 @@ WITHOUT_DERIVATIVE = frozenset({"ddt"})
 
 
 def _linearise(circuit: Circuit, element: Element, bias: Bias) -> Device:
+    from tauledger.devices.derivative import at_bias
+
     assert element.formula is not None
     found = at_bias(element.formula, circuit, bias, element.name)
     m = _factor(circuit, element)
