@@ -8,7 +8,6 @@ what ngspice takes), one given by its charge q(v, …) the derivative of the cha
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping
-
 from typing import TYPE_CHECKING
 
 from tauledger.circuit import Apply, Circuit, Current, Element, Formula, Model, Variable, Voltage
