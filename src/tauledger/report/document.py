@@ -11,6 +11,7 @@ from typing import Literal
 from msgspec import Struct
 
 from tauledger.record import CauseFacts, Review
+from tauledger.report.drawing.stage import drawable
 from tauledger.report.sentences import (
     Answer,
     KeyFigure,
@@ -246,14 +247,20 @@ def _lower(review: Review) -> Section:
 
 
 def _stages(review: Review) -> Section:
-    if not review.stages:
-        return Section("stages", "", ())
-    caption = (
-        "The small-signal circuit of the hand analysis, stage by stage: at every node its resistance and its "
-        "capacitances with their Miller part, R_Th the resistance at the input. Gm·v, with Gm = gain over R, gives the "
-        "gain in the table."
-    )
-    return Section("stages", "Stages", (setting.stages(review), Picture("stages", caption)))
+    blocks: list[Block] = [setting.stages(review)] if review.stages else []
+    drawn = drawable(review)
+    if drawn:
+        caption = (
+            "The small-signal circuit of the hand analysis, stage by stage: at every node its resistance and its "
+            "capacitances with their Miller part, R_Th the resistance at the input. Gm·v, with Gm = gain over R, gives "
+            "the gain in the table."
+        )
+        if len(drawn) < len(review.stages):
+            caption += f" Drawn: the first {len(drawn)} nodes of {len(review.stages)}."
+        blocks.append(Picture("stages", caption))
+    elif upper.counting_nodes(review):
+        blocks.append(upper.equivalent(review))
+    return Section("stages", "Stages" if review.stages else "The network of the hand analysis", tuple(blocks))
 
 
 def _devices(review: Review) -> Section:

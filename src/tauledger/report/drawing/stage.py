@@ -31,6 +31,7 @@ TOP, BOTTOM = 50.0, 176.0
 COLUMN, MARGIN = 136.0, 22.0
 MOST_CAPACITORS = 3
 SMALL = 0.03
+MOST_STAGES = 24
 
 
 class Element(Struct, frozen=True):
@@ -41,17 +42,25 @@ class Element(Struct, frozen=True):
     part: str = ""
 
 
+def drawable(review: Review) -> tuple[Stage, ...]:
+    """Give the chain of nodes that can be drawn, at most 24; empty for other networks, such as those of two halves."""
+    rows = {node.name: node for node in review.nodes}
+    if any(stage.image or stage.gain_hand is None or stage.node not in rows for stage in review.stages):
+        return ()
+    if any(not rows[stage.node].resistance_hand_ohm for stage in review.stages):
+        return ()
+    return review.stages[:MOST_STAGES]
+
+
 def drawn_stages(review: Review) -> tuple[tuple[str, str], ...]:
     """Give heading and SVG for each stage of the signal path, the source with its first node before them.
 
     Empty where the network is not a chain of nodes with a resistance and a gain by hand.
     """
+    chain = drawable(review)
+    if not chain:
+        return ()
     rows = {node.name: node for node in review.nodes}
-    chain = [stage for stage in review.stages if stage.node in rows]
-    if len(chain) != len(review.stages) or any(stage.gain_hand is None for stage in chain) or not chain:
-        return ()
-    if any(not rows[stage.node].resistance_hand_ohm for stage in chain):
-        return ()
     first = chain[0]
     drawings = [(f"Source to {rows[first.node].title}", _draw_input(review, first, rows[first.node]))]
     for k, (before, stage) in enumerate(pairwise(chain), start=1):

@@ -12,6 +12,8 @@ from tauledger.report.wording import move, number, owners_text, part_titles
 
 # Farther than this from the band a root moves nothing that a reader could measure.
 FAR = 50.0
+# Of each kind the nearest to the band edges; more names than these nobody tells apart in a picture.
+MOST = 24
 MAKES_THE_EDGE = 0.5
 EFFECT_SHOWN = 0.02
 
@@ -43,12 +45,16 @@ def band_hz(review: Review) -> tuple[float, float]:
 
 
 def near_roots(review: Review) -> tuple[Root, ...]:
-    """Name the poles and zeros within a factor of 50 of the band that do not cancel, and zeros at DC; poles first."""
+    """Name the poles and zeros within a factor of 50 of the band that do not cancel, and zeros at DC; poles first.
+
+    At most 24 of each: those nearest to the band edges.
+    """
     low, high = band_hz(review)
     named: list[Root] = []
     for letter, roots in (("p", review.poles), ("z", review.zeros)):
         near: list[PoleFacts | ZeroFacts] = [root for root in roots if not root.cancelled and _near(root, low, high)]
-        near.sort(key=_size)
+        near.sort(key=lambda root: _away(_size(root), low, high))
+        near = sorted(near[:MOST], key=_size)
         named += [Root(f"{letter}{k}", root.real_hz, root.imag_hz, root) for k, root in enumerate(near, start=1)]
     return tuple(named)
 
@@ -81,7 +87,7 @@ def roots_table(review: Review) -> Grid:
     rest = [len(review.poles) - sum(root.is_pole for root in roots)]
     rest.append(len(review.zeros) - len(roots) + sum(root.is_pole for root in roots))
     words = [f"{many} {word}{'s' * (many != 1)}" for many, word in zip(rest, ("pole", "zero"), strict=True) if many]
-    note = f"Not shown: {' and '.join(words)} that cancel or lie far off." if words else ""
+    note = f"Not shown: {' and '.join(words)} that cancel or lie farther off." if words else ""
     return Grid("Poles and zeros near the band", heads, tuple(rows), note)
 
 
@@ -90,6 +96,13 @@ def _near(root: PoleFacts | ZeroFacts, low: float, high: float) -> bool:
     if size == 0.0 or (root.real_hz > 0.0 and isinstance(root, PoleFacts)):
         return True
     return low / FAR <= size <= high * FAR
+
+
+def _away(size: float, low: float, high: float) -> float:
+    """Give the distance from the nearer band edge as the logarithm of a ratio; what lies at DC comes first."""
+    if size == 0.0:
+        return 0.0
+    return min((abs(math.log(size / edge)) for edge in (low, high) if 0.0 < edge < math.inf), default=math.log(size))
 
 
 def _size(root: PoleFacts | ZeroFacts) -> float:

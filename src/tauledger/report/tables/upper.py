@@ -6,7 +6,7 @@ import math
 from collections.abc import Iterable, Mapping
 
 from tauledger.record import CapacitanceTerm, NodeRow, PartRow, Review
-from tauledger.report.tables.grid import Grid, GridRow, columns
+from tauledger.report.tables.grid import Column, Grid, GridRow, columns
 from tauledger.report.wording import (
     NO_NUMBER,
     SOLVED,
@@ -73,6 +73,19 @@ def smaller_nodes(review: Review) -> Grid:
     return Grid(
         "Nodes that hardly count, and nodes off the signal path", BUDGET_COLUMNS, tuple(_node_rows(rest, review))
     )
+
+
+def equivalent(review: Review) -> Grid:
+    """Give the network of the hand analysis as a table: every node by itself, R in parallel with its capacitances."""
+    titles = part_titles(review.parts)
+    rows = []
+    for node in counting_nodes(review):
+        terms = node.working.capacitances if node.working else ()
+        ordered = sorted(terms, key=lambda term: -abs(term_seconds(term, node)))
+        told = "; ".join(f"{titles.get(term.part, term.part)} {term_text(term)}" for term in ordered)
+        rows.append(GridRow((node_title(node), number(node.resistance_hand_ohm, "Ω"), told), part=node.name))
+    heads = (Column("Node", "l"), Column("R"), Column("in parallel with", "l"))
+    return Grid("Every node by itself: its resistance and the capacitances with their Miller part", heads, tuple(rows))
 
 
 BUDGET_COLUMNS = columns(
