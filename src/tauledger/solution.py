@@ -26,7 +26,8 @@ class Isolation(Struct, frozen=True):
     voltages: of its terminals, V (n_terminals,), in the order of `circuit.terminals_of`. currents: through the sources
     that it refers to, A (n_references,). frequency_hz: where, Hz (n_freq,). inner: suffixes of ngspice's inner nodes to
     record ("collCX"); those that the instance does not have are left out. parameters: instance parameters set
-    otherwise than on its card.
+    otherwise than on its card. each_node: every place of a node on the card is a terminal of its own, even where two
+    are one node; voltages are in that order then.
     """
 
     element: str
@@ -35,6 +36,7 @@ class Isolation(Struct, frozen=True):
     currents: tuple[float, ...] = ()
     inner: tuple[str, ...] = ()
     parameters: tuple[tuple[str, float], ...] = ()
+    each_node: bool = False
 
 
 class Samples(Struct, frozen=True):

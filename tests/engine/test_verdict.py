@@ -50,6 +50,17 @@ def test_harmless_lines_are_dropped_and_the_others_told_once() -> None:
     assert judge((), run, has_result=True, names=NAMES).says == ("Warning: Q1: is hot",)
 
 
+def test_a_model_parameter_read_past_is_told_and_no_failure() -> None:
+    load = (
+        "stderr Warning: Model issue on line 7 :",
+        "stderr unrecognized parameter (foo) - ignored",
+        "stdout Circuit: x",
+    )
+    verdict = judge(load, QUIET, has_result=True, names=NAMES)
+    assert verdict.state == "sound"
+    assert verdict.says == (said,)
+
+
 @pytest.mark.parametrize(
     ("line", "said"),
     [

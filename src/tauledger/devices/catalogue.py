@@ -4,15 +4,25 @@ from __future__ import annotations
 
 from tauledger.circuit import Circuit, Element, Model
 from tauledger.devices.behavioural import BEHAVIOURAL
+from tauledger.devices.bsim import BSIM3, BSIM4
 from tauledger.devices.controlled import CURRENT_GAIN, TRANSCONDUCTANCE, TRANSRESISTANCE, VOLTAGE_GAIN
 from tauledger.devices.coupling import COUPLING
+from tauledger.devices.diode import DIODE
 from tauledger.devices.family import Device, Family, Linearised, Refusal
 from tauledger.devices.fitted import FITTED
 from tauledger.devices.gummel_poon import GUMMEL_POON
+from tauledger.devices.jfet import LEVEL_1 as JFET_1
+from tauledger.devices.jfet import LEVEL_2 as JFET_2
+from tauledger.devices.meyer import LEVEL_1 as MOS_1
+from tauledger.devices.meyer import LEVEL_2 as MOS_2
+from tauledger.devices.meyer import LEVEL_3 as MOS_3
+from tauledger.devices.meyer import LEVEL_6 as MOS_6
+from tauledger.devices.meyer import LEVEL_9 as MOS_9
 from tauledger.devices.parts import Part
 from tauledger.devices.passives import CAPACITOR, INDUCTOR, RESISTOR, passive_part
 from tauledger.devices.sources import CURRENT_SOURCE, VOLTAGE_SOURCE
 from tauledger.devices.switches import CURRENT_SWITCH, VOLTAGE_SWITCH
+from tauledger.devices.vdmos import VDMOS
 from tauledger.errors import InputError
 from tauledger.solution import Bias, Isolation, Observation
 
@@ -30,6 +40,17 @@ FAMILIES: tuple[Family, ...] = (
     VOLTAGE_SWITCH,
     CURRENT_SWITCH,
     GUMMEL_POON,
+    DIODE,
+    MOS_1,
+    MOS_2,
+    MOS_3,
+    MOS_6,
+    MOS_9,
+    BSIM3,
+    BSIM4,
+    VDMOS,
+    JFET_1,
+    JFET_2,
     *FITTED,
     *BEHAVIOURAL,
 )

@@ -1,7 +1,8 @@
-"""One instance alone: the small circuit in which it is measured, and its answers put together.
+"""Instances alone: the circuit in which they are measured, and their answers put together.
 
 Every terminal stands on a voltage source of its own, ground included; a source that the instance refers to carries a
-forced current. The engine is asked with unit AC on one of them after the other.
+forced current. The engine is asked with unit AC on one of them after the other, of all instances at once: they do not
+touch each other.
 """
 
 from __future__ import annotations
@@ -32,73 +33,105 @@ Complex = NDArray[np.complex128]
 
 
 class Alone(Struct, frozen=True):
-    """The circuit of one instance; names of the voltage sources at its terminals, and of the forced currents."""
+    """One instance in the circuit of several: its name there, its terminals, and its sources.
 
-    circuit: Circuit
+    terminals: names of the user's nodes. holders, forced: voltage sources at the terminals, forced currents.
+    """
+
+    isolation: Isolation
+    name: str
     terminals: tuple[str, ...]
     holders: tuple[str, ...]
     forced: tuple[str, ...]
 
+    @property
+    def sources(self) -> tuple[str, ...]:
+        """What is driven, one after the other."""
+        return (*self.holders, *self.forced)
 
-def alone(circuit: Circuit, isolation: Isolation) -> Alone:
-    """Build the circuit of one instance with its terminals held and its controlling currents forced.
+
+class Bench(Struct, frozen=True):
+    """A circuit of instances that do not touch each other."""
+
+    circuit: Circuit
+    instances: tuple[Alone, ...]
+
+
+def bench(circuit: Circuit, isolations: Sequence[Isolation]) -> Bench:
+    """Build the circuit of instances with their terminals held and their controlling currents forced.
 
     Raises EngineError where the circuit has no such element, ValueError where voltages or currents do not fit to it.
     """
-    element = next((e for e in circuit.elements if fold(e.name) == fold(isolation.element)), None)
-    if element is None:
-        raise EngineError(f"no element is called {isolation.element}")
-    ends = terminals_of(element)
-    if len(ends) != len(isolation.voltages) or len(element.references) != len(isolation.currents):
-        raise ValueError(f"{element.name} has {len(ends)} terminals and {len(element.references)} controlling currents")
-    number = {node: k for k, node in enumerate(ends, start=1)}
-    instance = replace(
-        element,
-        nodes=tuple(number[node] for node in element.nodes),
-        formula=_renumbered(element.formula, number),
-        parameters=tuple({**dict(element.parameters), **dict(isolation.parameters)}.items()),
-    )
-    held = [_source("V", f"{element.name}'held{k}", (k, 0), volt) for k, volt in enumerate(isolation.voltages, start=1)]
-    first = len(ends) + 1
-    forced = [
-        _source("I", f"{element.name}'forced{k}", (0, k), ampere) for k, ampere in enumerate(isolation.currents, first)
-    ]
-    sensors = [_source("V", name, (k, 0), 0.0) for k, name in enumerate(element.references, first)]
+    nodes = [GROUND]
+    elements: list[Element] = []
+    instances: list[Alone] = []
+    for isolation in isolations:
+        element = next((e for e in circuit.elements if fold(e.name) == fold(isolation.element)), None)
+        if element is None:
+            raise EngineError(f"no element is called {isolation.element}")
+        ends = element.nodes if isolation.each_node else terminals_of(element)
+        if len(ends) != len(isolation.voltages) or len(element.references) != len(isolation.currents):
+            raise ValueError(
+                f"{element.name} has {len(ends)} terminals and {len(element.references)} controlling currents"
+            )
+        first = len(nodes)
+        number = {node: k for k, node in enumerate(ends, start=first)}
+        behind = first + len(ends)
+        held = [
+            _source("V", f"{element.name}'held{k}", (k, 0), volt) for k, volt in enumerate(isolation.voltages, first)
+        ]
+        forced = [
+            _source("I", f"{element.name}'forced{k}", (0, k), ampere)
+            for k, ampere in enumerate(isolation.currents, behind)
+        ]
+        sensors = [_source("V", f"{element.name}'sensor{k}", (k, 0), 0.0) for k in range(behind, behind + len(forced))]
+        instance = replace(
+            element,
+            nodes=tuple(range(first, behind)) if isolation.each_node else tuple(number[node] for node in element.nodes),
+            formula=_renumbered(element.formula, number),
+            references=tuple(sensor.name for sensor in sensors),
+            parameters=tuple({**dict(element.parameters), **dict(isolation.parameters)}.items()),
+        )
+        nodes += [f"{element.name}'{k}" for k in range(first, behind + len(forced))]
+        elements += [instance, *held, *forced, *sensors]
+        instances.append(
+            Alone(
+                isolation,
+                element.name,
+                tuple(circuit.nodes[node] for node in ends),
+                tuple(source.name for source in held),
+                tuple(source.name for source in forced),
+            )
+        )
+    used = {element.model for element in elements}
     nothing = np.array([], dtype=np.int32)
     made = Circuit(
         title=circuit.title,
-        nodes=(GROUND, *(f"{element.name}'{k}" for k in range(1, first + len(forced)))),
+        nodes=tuple(nodes),
         passives=Passives("", (), nothing, nothing, np.array([], dtype=float), nothing, nothing),
-        elements=(instance, *held, *forced, *sensors),
-        models=tuple(model for model in circuit.models if model.name == element.model),
+        elements=tuple(elements),
+        models=tuple(model for model in circuit.models if model.name in used),
         drive=(),
         output=Port(GROUND),
         temperature_c=circuit.temperature_c,
         tnom_c=circuit.tnom_c,
         options=circuit.options,
     )
-    return Alone(
-        made,
-        tuple(circuit.nodes[node] for node in ends),
-        tuple(source.name for source in held),
-        tuple(source.name for source in forced),
-    )
+    return Bench(made, tuple(instances))
 
 
-def samples(
-    isolation: Isolation, terminals: tuple[str, ...], frequency_hz: NDArray[np.float64], answers: Sequence[Complex]
-) -> Samples:
-    """Put the answers to unit AC together.
+def samples(instance: Alone, frequency_hz: NDArray[np.float64], answers: Sequence[Complex]) -> Samples:
+    """Put the answers of one instance to unit AC together.
 
     answers: for each held terminal, then each forced current, the currents through the holders (from the terminal into
     ground) and the inner nodes' voltages, (n_terminals + n_inner, n_freq); an inner node that does not exist is NaN.
     """
-    n = len(terminals)
+    isolation, n = instance.isolation, len(instance.terminals)
     driven = np.stack(answers, axis=-1).transpose(1, 0, 2)
     exists = [k for k in range(len(isolation.inner)) if not np.all(np.isnan(driven[:, n + k, 0]))]
     found = Samples(
         element=isolation.element,
-        terminals=terminals,
+        terminals=instance.terminals,
         frequency_hz=frequency_hz,
         admittance=-driven[:, :n, :n],
         current_gain=-driven[:, :n, n:],

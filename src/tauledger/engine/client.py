@@ -35,6 +35,8 @@ INSTALL_HINT = (
 INERT = "* nothing is set here\n"
 LOG = "worker.log"
 TELL_AT_MOST = 6
+# Instances measured in one run; what the answer weighs grows with their number times their inner nodes.
+TOGETHER = 50
 PACKAGE_ROOT = Path(__file__).resolve().parents[2]
 
 
@@ -144,7 +146,8 @@ class Engine:
         wanted = isolations(circuit, bias)
         if not wanted:
             return bias
-        return replace(bias, samples={asked.element: self.isolate(circuit, asked) for asked in wanted})
+        found = self.isolate_all(circuit, wanted)
+        return replace(bias, samples={samples.element: samples for samples in found})
 
     def _bias(
         self, circuit: Circuit, observations: Sequence[Observation], deck: Deck, warnings: tuple[str, ...]
@@ -229,46 +232,78 @@ class Engine:
         Raises EngineError (rejected, no operating point, no AC response), EngineTimeout; ValueError where voltages do
         not fit to the terminals.
         """
+        return self.isolate_all(circuit, (isolation,))[0]
+
+    def isolate_all(self, circuit: Circuit, isolations: Sequence[Isolation]) -> tuple[Samples, ...]:
+        """Measure instances alone, those with the same frequencies in one run; raises what `isolate` raises."""
+        groups: dict[tuple[float, ...], list[Isolation]] = {}
+        for isolation in isolations:
+            groups.setdefault(isolation.frequency_hz, []).append(isolation)
+        found: dict[str, Samples] = {}
+        for together in groups.values():
+            for first in range(0, len(together), TOGETHER):
+                some = together[first : first + TOGETHER]
+                try:
+                    found |= {answer.element: answer for answer in self._isolate(circuit, some)}
+                except EngineError:
+                    if len(some) == 1 or not self._open:
+                        raise
+                    # one of them has no answer: asked one by one, the message names it
+                    for alone in some:
+                        found |= {answer.element: answer for answer in self._isolate(circuit, [alone])}
+        return tuple(found[isolation.element] for isolation in isolations)
+
+    def _isolate(self, circuit: Circuit, isolations: Sequence[Isolation]) -> list[Samples]:
         import numpy as np
 
         from tauledger.circuit import fold
-        from tauledger.engine.alone import alone, samples
+        from tauledger.engine.alone import bench, samples
         from tauledger.engine.deck import write_deck
         from tauledger.engine.grid import GRID_TOLERANCE, plan
         from tauledger.engine.verdict import judge
 
-        single = alone(circuit, isolation)
-        deck = write_deck(single.circuit)
-        at = {name: deck.elements[fold(name)] for name in (isolation.element, *single.holders, *single.forced)}
-        asked = np.array(isolation.frequency_hz, dtype=float)
-        grids = [(g.points, g.start_hz, g.stop_hz) for g in plan(asked)]
-        vectors = [f"{at[name]}#branch" for name in single.holders]
-        vectors += [f"{at[isolation.element]}#{suffix}" for suffix in isolation.inner]
-        sources = [at[name] for name in (*single.holders, *single.forced)]
+        made = bench(circuit, isolations)
+        deck = write_deck(made.circuit)
+        asked = np.array(isolations[0].frequency_hz, dtype=float)
+        vectors: list[str] = []
+        own: list[slice] = []
+        for instance in made.instances:
+            first = len(vectors)
+            vectors += [f"{deck.elements[fold(name)]}#branch" for name in instance.holders]
+            vectors += [f"{deck.elements[fold(instance.name)]}#{suffix}" for suffix in instance.isolation.inner]
+            own.append(slice(first, len(vectors)))
+        most = max(len(instance.sources) for instance in made.instances)
         self._displaced = True
-        request = {"do": "isolate", "deck": deck.text, "vectors": vectors, "grids": grids, "sources": sources}
-        answer = self._ask(request)
-
-        columns: list[np.ndarray] = []
+        answer = self._ask(
+            {
+                "do": "isolate",
+                "deck": deck.text,
+                "vectors": vectors,
+                "grids": [(g.points, g.start_hz, g.stop_hz) for g in plan(asked)],
+                "sources": [
+                    [deck.elements[fold(i.sources[k])] for i in made.instances if k < len(i.sources)]
+                    for k in range(most)
+                ],
+            }
+        )
+        columns: list[NDArray[np.complex128]] = []
         frequency = asked
         for runs in answer["driven"]:
             for run in runs:
-                solved = [run["frequency"], *run["vectors"][: len(single.holders)]]
-                verdict = judge(answer["load"], run["run"], has_result=all(solved), names=deck.says)
+                verdict = judge(answer["load"], run["run"], has_result=bool(run["frequency"]), names=deck.says)
                 if verdict.state not in ("sound", "stepped"):
-                    raise EngineError(
-                        f"ngspice gave no AC response of {isolation.element} alone",
-                        engine_says=verdict.says[:TELL_AT_MOST],
-                    )
+                    names = ", ".join(isolation.element for isolation in isolations)
+                    says = verdict.says[:TELL_AT_MOST]
+                    raise EngineError(f"ngspice gave no AC response of {names} alone", engine_says=says)
             frequency = np.concatenate([np.array(run["frequency"]).view(complex).real for run in runs])
             if len(frequency) != len(asked) or np.max(np.abs(frequency / asked - 1.0)) > GRID_TOLERANCE:
                 raise EngineError("ngspice solved other frequencies than those asked for")
-            columns.append(
-                np.array(
-                    [np.concatenate([_column(run, k) for run in runs]) for k in range(len(vectors))], dtype=complex
-                )
-            )
-        return samples(isolation, single.terminals, frequency, columns)
+            column = [np.concatenate([_column(run, k) for run in runs]) for k in range(len(vectors))]
+            columns.append(np.array(column, dtype=complex))
+        return [
+            samples(instance, frequency, [column[part] for column in columns[: len(instance.sources)]])
+            for instance, part in zip(made.instances, own, strict=True)
+        ]
 
     def _run(self, grids: Sequence[Grid]) -> Sweep:
         """Run AC grids on the loaded circuit; the sweep holds whatever frequencies the engine laid out."""

@@ -23,9 +23,13 @@ _STEPPED = re.compile(r"stepping completed", re.I)
 _HARMLESS = re.compile(
     r"""^\s*$ | gmin\ stepping | gmin\ step | ^trying\ gmin | gmin\ increment | source\ step | ^supplies\ reduced
     | has\ no\ value,\ dc\ 0\ assumed | dc\ value\ used\ for\ op | compatibility\ mode | using\ sparse | spinit
-    | there\ is\ no\ circuit\ loaded | ^command\ 'remcirc'\ is\ ignored""",
+    | there\ is\ no\ circuit\ loaded | ^command\ 'remcirc'\ is\ ignored
+    | ^checking\ parameters\ for | \bp[ds]\ =\ \S+\ is\ less\ than\ w""",
     re.I | re.X,
 )
+# A model parameter that this version of a model does not have; ngspice reads past it.
+_IGNORED = re.compile(r"unrecognized parameter .* - ignored", re.I)
+_ABOUT_A_MODEL = re.compile(r"model issue on line", re.I)
 _NAME = re.compile(r"(?<![\w.#])([a-z]+\d+)(#\w+)?(?!\w)")
 _INNER = {
     "#branch": "the current through {}",
@@ -52,8 +56,10 @@ def judge(load: Iterable[str], run: Iterable[str], *, has_result: bool, names: M
     """
     load, run = tuple(load), tuple(run)
     text = "\n".join((*load, *run))
-    rejected = _errors(load)
-    says = tuple(dict.fromkeys(translate(line, names) for line in (*rejected, *_errors(run))))
+    told = [line for line in _errors(load) if not _IGNORED.search(line)]
+    rejected = () if all(_ABOUT_A_MODEL.search(line) for line in told) else tuple(told)
+    ignored = (line.split(" ", 1)[1] for line in load if _IGNORED.search(line))
+    says = tuple(dict.fromkeys(translate(line, names) for line in (*rejected, *_errors(run), *ignored)))
     if _DEAD.search(text):
         return Verdict("dead", says)
     if rejected:

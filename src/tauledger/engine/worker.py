@@ -20,6 +20,8 @@ from typing import Any
 from tauledger.engine.protocol import Message, receive, send
 
 LINUX_NAMES = ("libngspice.so.0", "libngspice.so")
+# ngspice takes commands of about a thousand characters.
+SAVED_AT_ONCE = 30
 DARWIN_NAMES = ("/opt/homebrew/lib/libngspice.dylib", "/usr/local/lib/libngspice.dylib", "libngspice.dylib")
 
 
@@ -134,16 +136,20 @@ def sweep(spice: Spice, request: Message) -> Message:
 
 
 def isolate(spice: Spice, request: Message) -> Message:
-    """Load a deck, and run the AC grids with unit amplitude on one of the sources after the other."""
+    """Load a deck, and run the AC grids with unit amplitude on one group of sources after the other."""
     spice.command("remcirc")
     spice.command("destroy all")
     load = spice.load(request["deck"])
-    spice.command("save " + " ".join(request["vectors"]))
+    spice.command("save " + request["vectors"][0])
+    for first in range(1, len(request["vectors"]), SAVED_AT_ONCE):
+        spice.command("save " + " ".join(request["vectors"][first : first + SAVED_AT_ONCE]))
     driven: list[list[Message]] = []
-    for source in request["sources"]:
-        spice.command(f"alter {source} acmag = 1.0")
+    for sources in request["sources"]:
+        for source in sources:
+            spice.command(f"alter {source} acmag = 1.0")
         driven.append(_ac(spice, request))
-        spice.command(f"alter {source} acmag = 0.0")
+        for source in sources:
+            spice.command(f"alter {source} acmag = 0.0")
     return {"load": load, "driven": driven}
 
 

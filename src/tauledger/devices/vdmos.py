@@ -1,0 +1,141 @@
+"""The vertical power MOS transistor: channel, gate charge and series resistances by reading, and its body diode.
+
+The body diode stands between the outer drain and source, behind R_B on the side of the source. Its capacitance has a
+reading (`cds`), its conductance has none: reverse biased it is gmin, and what the saturation current adds to it is seen
+from 125 °C on (1e-8 of the response). Where it conducts, this family cannot tell it. The shunt R_DS counts in ngspice's
+operating point, and (measured) not in its AC analysis.
+"""
+
+from __future__ import annotations
+
+from tauledger.circuit import Circuit, Element, Model
+from tauledger.devices.family import Device, Family, Refusal, Terminal, inner_node, names, readings_of
+from tauledger.devices.field_effect import Ends, cell_of, channel, figures, kept, mos_region, series
+from tauledger.devices.parts import capacitance, conductance
+from tauledger.devices.temperature import polynomial_factor, temperature_rise
+from tauledger.errors import InputError
+from tauledger.solution import Bias, Observation
+
+READINGS = (
+    *("id", "vgs", "vds", "von", "gm", "gds", "cgs", "cgd", "cds"),
+    *("rd", "rs", "drainconductance", "sourceconductance"),
+)
+GMIN = 1e-12
+# A body diode at this forward voltage carries less than gmin would at 1 V: 0.1 V are four times V_T.
+FORWARD_VOLT = 0.1
+
+
+def _observe(element: Element) -> Observation | None:
+    return Observation(element.name, READINGS)
+
+
+def _refuse(element: Element, model: Model | None) -> Refusal | None:
+    if model is not None and any(name in dict(element.parameters) for name in ("thermal",)):
+        return Refusal("thermal", "self-heating is no network of conductances and capacitances", "leave thermal out")
+    return None
+
+
+def is_p_channel(model: Model) -> bool:
+    """Say whether the model is that of a p-channel device."""
+    return any(model.parameter(name, 0.0) for name in ("pchan", "vdmosp"))
+
+
+def _linearise(circuit: Circuit, element: Element, bias: Bias) -> Device:
+    model = circuit.model(element.model)
+    read = readings_of(bias, element)
+    name = element.name
+    m = element.parameter("m", 1.0)
+    rise = temperature_rise(circuit, element, model)
+    sign = -1.0 if is_p_channel(model) else 1.0
+    drain, gate, source = (circuit.nodes[node] for node in element.nodes[:3])
+    v_ds = sign * float(bias.voltages[element.nodes[0]] - bias.voltages[element.nodes[2]])
+    if -v_ds > FORWARD_VOLT:
+        raise InputError(
+            f"{name}: its body diode conducts at the operating point, and ngspice does not tell its conductance",
+            "leave the diode out (IS small), and write a diode of its own beside the transistor",
+        )
+    g_drain = read["drainconductance"] if read["rd"] > 0.0 else 0.0
+    g_source = read["sourceconductance"] if read["rs"] > 0.0 else 0.0
+    g_gate, g_body = (_conductance(model, resistance, m, rise) for resistance in ("rg", "rb"))
+    inner_gate = inner_node(name, "g") if g_gate else gate
+    inner_body = inner_node(name, "b") if g_body else source
+    ends = Ends(
+        drain=drain,
+        gate=inner_gate,
+        source=source,
+        body=None,
+        inner_drain=inner_node(name, "d") if g_drain else drain,
+        inner_source=inner_node(name, "s") if g_source else source,
+        reversed=read["vds"] < 0.0,
+    )
+    gm, g_o = read["gm"], read["gds"]
+    gmin = m * dict(circuit.options).get("gmin", GMIN)
+    parts = kept(
+        (
+            *series(name, ends, g_drain, g_source),
+            conductance(name, gate, inner_gate, g_gate, "g_gate"),
+            *channel(name, ends, gm, g_o, 0.0),
+            capacitance(name, inner_gate, ends.inner_source, read["cgs"], "c_gs"),
+            capacitance(name, inner_gate, ends.inner_drain, read["cgd"], "c_gd"),
+            conductance(name, source, inner_body, g_body, "g_body"),
+            conductance(name, drain, inner_body, gmin, "g_diode"),
+            capacitance(name, drain, inner_body, read["cds"], "c_db"),
+        )
+    )
+    threshold = sign * read["von"]
+    return Device(
+        name=name,
+        kind="pmos" if sign < 0.0 else "nmos",
+        region=mos_region(read["vgs"], read["vds"], threshold, read["vgs"] - threshold, read["id"]),
+        figures=figures(
+            bias,
+            element,
+            sign * read["id"],
+            gm=gm,
+            g_mb=None,
+            g_o=g_o,
+            charges={"c_gs": read["cgs"], "c_gd": read["cgd"], "c_db": read["cds"]},
+            gate_charge=read["cgs"] + read["cgd"],
+        ),
+        terminals=(
+            Terminal("drain", drain, ends.inner_drain),
+            Terminal("gate", gate, inner_gate),
+            Terminal("source", source, ends.inner_source),
+        ),
+        cell=cell_of(name, ends, gm, g_o, 0.0),
+        parts=parts,
+        without_charge=not any(part.kind == "capacitance" for part in parts),
+    )
+
+
+def _conductance(model: Model, resistance: str, m: float, rise_k: float) -> float:
+    """Give m/(R·(1 + T·ΔT + T2·ΔT²)) in S of R_G or R_B; 0 where the model has none."""
+    ohm = model.parameter(resistance, 0.0)
+    if not ohm:
+        return 0.0
+    of_temperature = [model.parameter(f"t{resistance}{order}", 0.0) for order in (1, 2)]
+    return m / (ohm * polynomial_factor(of_temperature[0], of_temperature[1], rise_k))
+
+
+FLAGS = names("nchan pchan vdmosn vdmosp vdmos")
+VDMOS = Family(
+    letter="M",
+    words="power MOS transistor",
+    terminals=("drain", "gate", "source"),
+    linearise=_linearise,
+    observe=_observe,
+    refuse=_refuse,
+    model_types=("vdmos",),
+    levels=(1,),
+    instance_parameters=names("m off icvds icvgs temp dtemp"),
+    model_parameters=names(
+        """
+        vto vth0 kp phi lambda theta rd rs rg tnom kf af rq vq mtriode tcvth vtotc mu bex texp0 texp1 trd1 trd2 trg1
+        trg2 trs1 trs2 trb1 trb2 subshift ksubthres tksubthres1 tksubthres2 bv ibv nbv rds rb n tt eg xti is vj cjo m fc
+        cgdmin cgdmax a cgs rthjc rthca cthj vgs_max vgd_max vds_max vgsr_max vgdr_max pd_max id_max idr_max te_max
+        rth_ext derating
+        """
+    )
+    | FLAGS,
+    flags=FLAGS,
+)
