@@ -10,6 +10,7 @@ import pytest
 
 from tauledger.cli import main
 from tauledger.engine.client import Engine
+from tauledger.errors import InputError
 from tauledger.pipeline import devices
 from tauledger.report.devices import render, to_json
 
@@ -67,3 +68,17 @@ def test_command_prints_json_alone_on_standard_output(capfdbinary: pytest.Captur
         main(["devices", str(PREAMP), "--json", "-"])
     assert end.value.code == 0
     assert json.loads(capfdbinary.readouterr().out)["devices"][0]["name"] == "Q1"
+
+
+def test_a_netlist_without_drive_and_output_has_its_devices_and_says_what_is_not_judged(
+    tmp_path: Path, engine: Engine
+) -> None:
+    path = tmp_path / "bias.cir"
+    path.write_text(
+        "Gauge: bias only\nVCC vcc 0 5\nVB b 0 0.7\nRC vcc c 1k\nQ1 c b 0 n\n.model n npn(is=1e-15)\n.end\n"
+    )
+    found = devices(path, engine=engine)
+    assert [device.name for device in found.devices] == ["Q1"]
+    assert [note.note for note in found.notes] == ["no-signal"]
+    with pytest.raises(InputError, match="no voltage or current source is called"):
+        devices(path, engine=engine, drive="VX")

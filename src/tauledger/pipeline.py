@@ -19,7 +19,7 @@ from tauledger.compose.setting import unit_of
 from tauledger.devices.catalogue import linearise
 from tauledger.devices.family import Device
 from tauledger.engine.client import Engine, start_engine
-from tauledger.errors import InputError
+from tauledger.errors import InputError, NetlistError
 from tauledger.explain import Explanation, explain
 from tauledger.netlist import elaborate, read
 from tauledger.network.assemble import Network
@@ -112,12 +112,20 @@ def devices(
 ) -> DevicesTable:
     """Give every transistor and diode of the netlist at `path` at its operating point; nothing is swept.
 
+    A netlist that drives nothing or names no output will do, with a note that says what is not judged then.
     Raises NetlistError, InputError, EngineError (EngineMissing, EngineTimeout).
     """
     from tauledger.compose.devices import devices_table
 
     netlist = read(path)
-    circuit = elaborate(netlist, change, drive=drive, output=output)
+    try:
+        circuit = elaborate(netlist, change, drive=drive, output=output)
+    except NetlistError:
+        raise
+    except InputError:
+        if drive is not None or output is not None:
+            raise
+        circuit = elaborate(netlist, change, purpose="reading")
     bias = engine.operating_point(circuit)
     return devices_table(netlist, circuit, bias, linearise(circuit, bias))
 

@@ -5,7 +5,7 @@ from __future__ import annotations
 from tauledger import __version__
 from tauledger.causes.cause import note_facts
 from tauledger.causes.region import region_note
-from tauledger.circuit import Circuit
+from tauledger.circuit import GROUND, Circuit
 from tauledger.compose.review import netlist_facts
 from tauledger.compose.setting import EFFICIENCY, device_facts, figure_unit
 from tauledger.devices.family import Linearised
@@ -18,13 +18,16 @@ from tauledger.solution import Bias
 
 
 def devices_table(netlist: Netlist, circuit: Circuit, bias: Bias, linearised: Linearised) -> DevicesTable:
-    """Put the devices of a circuit into one record, each with gm/I; where no signal passes there are no notes on it."""
+    """Put the devices of a circuit into one record, each with gm/I, and note those that do not amplify."""
     network = Network.from_parts(linearised.parts, output=circuit.output)
+    told: list[NoteFacts] = []
     try:
         note = region_note(network, find_midband(network), linearised.devices)
-    except InputError:
-        note = None
-    told = [] if note is None else [note_facts(note)]
+    except InputError as reason:
+        why = "no source is driven, or no output is named" if circuit.output.plus == GROUND else reason.message
+        told.append(NoteFacts("no-signal", "", f"which devices signal passes is not judged: {why}"))
+    else:
+        told += [note_facts(note)] if note is not None else []
     told += [NoteFacts("engine-warning", "", line) for line in bias.warnings]
     return DevicesTable(
         schema=DEVICES_SCHEMA,

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import msgspec
 
-from tauledger.record import DeviceFacts, DevicesTable
+from tauledger.record import DeviceFacts, DevicesTable, Figure
 from tauledger.report.json import finite
 from tauledger.report.layout import STRONG, WARNING, Block, Prose, Row, Section, Table, lay_out
 from tauledger.report.wording import number, symbol
@@ -12,6 +12,8 @@ from tauledger.report.wording import number, symbol
 # What stands beside the region; the rest, resistances, capacitances and f_T, in a second table.
 _BIAS = ("i", "v")
 _BESIDE = ("gm", "g_mb", "gm/I")
+# gmin of 1e-12 S is the least conductance that ngspice itself puts anywhere.
+_NO_CURRENT_OHM = 1e15
 
 
 def render(found: DevicesTable, *, unicode: bool, width: int = 80) -> str:
@@ -43,11 +45,18 @@ def to_json(found: DevicesTable) -> bytes:
     return msgspec.json.encode(finite(msgspec.to_builtins(found))) + b"\n"
 
 
+def _figure(figure: Figure) -> str:
+    """Write a figure; a resistance that is rounding of an infinite one as such."""
+    if figure.unit == "Ω" and figure.value > _NO_CURRENT_OHM:
+        return "∞"
+    return number(figure.value, figure.unit, 3)
+
+
 def _table(devices: list[DeviceFacts], symbols: list[str], *, with_region: bool) -> Table:
     lead = ("DEVICE", "region") if with_region else ("DEVICE",)
     rows = []
     for device in devices:
         value = {figure.symbol: figure for figure in device.figures}
         first = (f"{device.name} {device.kind}", device.region) if with_region else (device.name,)
-        rows.append(Row((*first, *(number(value[name].value, value[name].unit, 3) for name in symbols))))
+        rows.append(Row((*first, *(_figure(value[name]) for name in symbols))))
     return Table("l" * len(lead) + "r" * len(symbols), (*lead, *map(symbol, symbols)), tuple(rows))
