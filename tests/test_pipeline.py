@@ -84,6 +84,9 @@ def test_band_edges_are_where_ngspice_falls_by_3_db(board: str, engine: Engine) 
         ("cable_driver.cir", ("CL", "L1", "C1", "C2")),
         ("gain_pair.cir", ("CL", "C3", "C8")),
         ("pair.cir", ("CLP", "CLN")),
+        ("hydrophone.cir", ("CF", "CS", "CC")),
+        ("mos_gain.cir", ("CC", "CF")),
+        ("line_driver.cir", ("CL", "C2")),
     ],
 )
 def test_shares_are_what_ngspice_does_when_a_part_changes_by_half_a_per_cent(

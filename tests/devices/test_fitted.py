@@ -86,6 +86,7 @@ CASES = {
         1.5,
         "5k",
     ),
+    "bsimsoi floating body": stage("M1 d g 0 b m w=10u l=0.5u", "nmos(level=58)", 1.5, 0.8, "50k"),
     "hisim2": stage("M1 d g 0 b m w=10u l=0.5u", "nmos(level=68)", 1.5, 0.8, "5k"),
     "mesfet": stage("Z1 d g 0 m", f"nmf{MES}", 5, -0.5, "500"),
     "mesfet triode": stage("Z1 d g 0 m area=2 m=2", f"nmf{MES}", 5, 0.0, "5k"),

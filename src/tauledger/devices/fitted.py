@@ -1,19 +1,24 @@
 """Families that ngspice does not tell enough about: measured alone, fitted, and reduced to textbook elements.
 
 What the readings of a compact model leave out (quasi-saturation, base modulation, gate and body resistances, tunnel
-currents) is in its terminal admittance; `fit.py` makes G and C of it, `reduced.py` the elements that paper knows.
+currents) is in its terminal admittance; `fit.py` makes G and C of it, `reduced.py` the elements that paper knows. Both
+are imported where an instance is fitted: a board without one does not pay for them.
 """
 
 from __future__ import annotations
 
 import math
-from collections.abc import Callable
+from collections.abc import Callable, Mapping
 
 from tauledger.circuit import Circuit, Element, Model, terminals_of
+from tauledger.devices.bsim import BSIM3_LEVELS, BSIM4_LEVELS
+from tauledger.devices.bsim3_parameters import MODEL_PARAMETERS as BSIM3_PARAMETERS
+from tauledger.devices.bsim4_parameters import MODEL_PARAMETERS as BSIM4_PARAMETERS
 from tauledger.devices.family import Device, Family, Refusal, Terminal, Transconductor, names, readings_of
-from tauledger.devices.fit import fit, frequencies
+from tauledger.devices.field_effect import Ends, cell_of, figures, is_p, mos_region
 from tauledger.devices.gummel_poon import MODEL_PARAMETERS as GUMMEL_POON_PARAMETERS
 from tauledger.devices.gummel_poon import region_of
+from tauledger.devices.jfet import DISPERSION, LEVEL_2
 from tauledger.devices.model_names import (
     BSIM1,
     BSIM2,
@@ -26,17 +31,20 @@ from tauledger.devices.model_names import (
     MESFET_A,
     VBIC,
 )
-from tauledger.devices.parts import Part
-from tauledger.devices.reduced import hybrid_pi, quasi_static, with_remainder
+from tauledger.devices.temperature import device_temperature
 from tauledger.solution import Bias, Isolation, Observation
 
 # Suffixes of the engine's inner nodes; those that an instance does not have are left out.
 GUMMEL_POON_INNER = ("collector", "collCX", "base", "emitter")
 VBIC_INNER = ("collector", "collCI", "base", "baseBI", "baseBP", "emitter", "substrate", "xf1", "xf2")
 HICUM_INNER = ("collCI", "baseBP", "baseBI", "emitEI", "subsSI", "xf", "xf1", "xf2")
-FET_INNER = ("drain", "source", "gate", "midgate", "dbody", "body", "sbody", "drainPrmPrm", "sourcePrmPrm")
+FET_INNER = ("drain", "source", "gate", "midgate", "dbody", "body", "Body", "sbody", "drainPrmPrm", "sourcePrmPrm")
 
 OFF_SIEMENS = 1e-9
+
+# What the engine calls the drain's current, by element letter, the first that a model has; and what tells the region.
+CURRENTS = {"M": ("id", "ids"), "J": ("id",), "Z": ("cd",)}
+THRESHOLDS = ("vgs", "vds", "vth", "vdsat")
 
 Refuse = Callable[[Element, Model | None], Refusal | None]
 
@@ -45,6 +53,8 @@ def isolated(inner: tuple[str, ...]) -> Callable[[Circuit, Element, Bias], Isola
     """Give the `isolate` of a family that is fitted, with these inner nodes."""
 
     def isolate(_circuit: Circuit, element: Element, bias: Bias) -> Isolation:
+        from tauledger.devices.fit import frequencies
+
         volts = tuple(float(bias.voltages[node]) for node in terminals_of(element))
         return Isolation(element.name, volts, frequencies(), inner=inner)
 
@@ -56,6 +66,9 @@ def bipolar(circuit: Circuit, element: Element, bias: Bias) -> Device:
 
     Raises EngineError where no matrices describe it.
     """
+    from tauledger.devices.fit import fit
+    from tauledger.devices.reduced import hybrid_pi, with_remainder
+
     samples = bias.samples[element.name]
     found, name = fit(samples), element.name
     c, b, e = (circuit.nodes[node] for node in element.nodes[:3])
@@ -65,9 +78,10 @@ def bipolar(circuit: Circuit, element: Element, bias: Bias) -> Device:
     model = circuit.model(element.model)
     sign = 1.0 if model.type == "npn" else -1.0
     v_be, v_bc = (sign * _volts(bias, element, 1, k) for k in (2, 0))
+    ampere = readings_of(bias, element)["ic"]
     gm, c_pi, c_mu = value.get("gm", 0.0), value.get("c_pi", 0.0), value.get("c_mu", 0.0)
     figures = (
-        ("i_c", readings_of(bias, element)["ic"]),
+        ("i_c", ampere),
         ("v_ce", _volts(bias, element, 0, 2)),
         ("gm", gm),
         ("r_pi", _inverse(value.get("g_pi"))),
@@ -75,6 +89,7 @@ def bipolar(circuit: Circuit, element: Element, bias: Bias) -> Device:
         ("c_pi", c_pi),
         ("c_mu", c_mu),
         ("f_t", _transit_hz(gm, c_pi + c_mu)),
+        ("gm/I", gm / abs(ampere) if ampere else None),
     )
     terminals = [Terminal("collector", c, c), Terminal("base", b, b), Terminal("emitter", e, e)]
     if s is not None:
@@ -85,7 +100,7 @@ def bipolar(circuit: Circuit, element: Element, bias: Bias) -> Device:
     return Device(
         name=name,
         kind=model.type,
-        region=region_of(v_be, v_bc, _temperature(circuit, element)),
+        region=region_of(v_be, v_bc, device_temperature(circuit, element)),
         figures=tuple((symbol, number) for symbol, number in figures if number is not None),
         terminals=tuple(terminals),
         cell=cell,
@@ -94,62 +109,63 @@ def bipolar(circuit: Circuit, element: Element, bias: Bias) -> Device:
 
 
 def field_effect(circuit: Circuit, element: Element, bias: Bias) -> Device:
-    """Give a fitted field-effect transistor: charges and conductances between its terminals, and the remainder.
+    """Give a fitted field-effect transistor: channel and charges between its terminals, and the remainder.
 
-    Drain and source are exchanged where the gate's current flows the other way. Region: off below 1e-9 S of gm, triode
-    where g_ds exceeds gm, else saturated.
+    Drain and source are exchanged where the gate's current flows the other way.
     Raises EngineError where no matrices describe it.
     """
+    from tauledger.devices.fit import fit
+    from tauledger.devices.reduced import quasi_static, with_remainder
+
     samples = bias.samples[element.name]
     found, name = fit(samples), element.name
     d, g, s = (circuit.nodes[node] for node in element.nodes[:3])
     b = circuit.nodes[element.nodes[3]] if len(element.nodes) > 3 else None
     forward = quasi_static(name, samples.terminals, found, (d, g, s, b))
-    gm = _value(forward, "gm")
-    turned = gm is not None and gm < 0.0
+    turned = any(part.label == "gm" and part.value < 0.0 for part in forward)
     elements = quasi_static(name, samples.terminals, found, (s, g, d, b)) if turned else forward
-    low, high = (d, s) if turned else (s, d)
     value = {part.label: part.value for part in elements}
-    gm, g_o = value.get("gm", 0.0), value.get("g_o", 0.0)
-    region = "off" if gm < OFF_SIEMENS else "triode" if g_o > gm else "saturated"
-    c_gate = sum(value.get(label, 0.0) for label in ("c_gs", "c_gd", "c_gb"))
-    figures = (
-        ("i_d", _drain_current(bias, element)),
-        ("v_ds", _volts(bias, element, 0, 2)),
-        ("gm", gm),
-        ("g_mb", value.get("g_mb")),
-        ("r_o", _inverse(value.get("g_o"))),
-        *((label, value.get(label)) for label in ("c_gs", "c_gd", "c_gb", "c_db", "c_sb")),
-        ("f_t", _transit_hz(gm, c_gate)),
+    gm, g_o, g_mb = (value.get(label, 0.0) for label in ("gm", "g_o", "g_mb"))
+    kind = circuit.model(element.model).type
+    sign = -1.0 if is_p(kind) else 1.0
+    read = readings_of(bias, element)
+    ampere = next((sign * read[name] for name in CURRENTS[element.letter] if name in read), math.nan)
+    ends = Ends(d, g, s, b, d, s, turned)
+    gate = samples.terminals.index(g)
+    told = figures(
+        bias,
+        element,
+        ampere,
+        gm=gm,
+        g_mb=value.get("g_mb") if b is not None else None,
+        g_o=g_o,
+        charges={label: value[label] for label in ("c_gs", "c_gd", "c_db", "c_sb") if label in value},
+        gate_charge=float(found.at_rest()[1][gate, gate]),
     )
-    words = (("drain", d), ("gate", g), ("source", s), *((("body", b),) if b is not None else ()))
-    cell = None
-    if len({d, g, s}) == 3 and gm > 0.0:
-        cell = Transconductor(
-            name, g, low, high, gm, None, _inverse(value.get("g_o")), b, value.get("g_mb", 0.0) if b else 0.0
-        )
     return Device(
         name=name,
-        kind=circuit.model(element.model).type,
-        region=f"reversed, {region}" if turned and region != "off" else region,
-        figures=tuple((symbol, number) for symbol, number in figures if number is not None),
-        terminals=tuple(Terminal(word, node, node) for word, node in words),
-        cell=cell,
+        kind=kind,
+        region=_region(read, sign, gm, g_o, turned=turned),
+        # models that do not tell their current leave out what follows from it
+        figures=tuple((symbol, number) for symbol, number in told if math.isfinite(number)),
+        terminals=ends.terminals(),
+        cell=cell_of(name, ends, gm, g_o, g_mb) if len({d, g, s}) == 3 else None,
         parts=with_remainder(name, samples.terminals, found, elements),
     )
 
 
+def _region(read: Mapping[str, float], sign: float, gm: float, g_o: float, *, turned: bool) -> str:
+    """Name the region: by threshold and saturation voltage where the engine tells them, else by gm and g_ds."""
+    if {*THRESHOLDS, "id"} <= read.keys():
+        return mos_region(read["vgs"], read["vds"], sign * read["vth"], read["vdsat"], read["id"])
+    if gm < OFF_SIEMENS:
+        return "off"
+    word = "triode" if g_o > gm else "saturation"
+    return f"{word}, reversed" if turned else word
+
+
 def _volts(bias: Bias, element: Element, plus: int, minus: int) -> float:
     return float(bias.voltages[element.nodes[plus]] - bias.voltages[element.nodes[minus]])
-
-
-def _drain_current(bias: Bias, element: Element) -> float:
-    read = readings_of(bias, element)
-    return next(iter(read.values()))
-
-
-def _temperature(circuit: Circuit, element: Element) -> float:
-    return element.parameter("temp", circuit.temperature_c + element.parameter("dtemp", 0.0))
 
 
 def _inverse(siemens: float | None) -> float | None:
@@ -160,13 +176,9 @@ def _transit_hz(gm: float, farad: float) -> float | None:
     return gm / (2.0 * math.pi * farad) if gm > 0.0 and farad > 0.0 else None
 
 
-def _value(parts: tuple[Part, ...], label: str) -> float | None:
-    return next((part.value for part in parts if part.label == label), None)
-
-
-def _reading(*asked: str) -> Callable[[Element], Observation | None]:
+def _reading(*asked: str, optional: tuple[str, ...] = ()) -> Callable[[Element], Observation | None]:
     def observe(element: Element) -> Observation:
-        return Observation(element.name, asked)
+        return Observation(element.name, asked, optional)
 
     return observe
 
@@ -185,6 +197,29 @@ def _no_delay(_element: Element, model: Model | None) -> Refusal | None:
     return None
 
 
+def _quasi_static_only(element: Element, model: Model | None) -> Refusal | None:
+    given = {**dict(model.parameters if model is not None else ()), **dict(element.parameters)}
+    if given.get("acnqsmod", 0.0) != 0.0:
+        return Refusal(
+            "acnqsmod",
+            "the non-quasi-static model for AC (ACNQSMOD) is no network of conductances and capacitances",
+            "leave ACNQSMOD out, or set it to 0",
+        )
+    return None
+
+
+def _without_dispersion(_element: Element, model: Model | None) -> Refusal | None:
+    given = dict(model.parameters) if model is not None else {}
+    for name in DISPERSION:
+        if given.get(name, 0.0) != 0.0:
+            return Refusal(
+                name,
+                f"dispersion ({name.upper()}) is no network of conductances and capacitances",
+                f"leave {name.upper()} out, or use level 1",
+            )
+    return None
+
+
 def _without_self_heating(_element: Element, model: Model | None) -> Refusal | None:
     if model is not None and model.parameter("flsh", 0.0) != 0.0:
         return Refusal(
@@ -196,11 +231,14 @@ def _without_self_heating(_element: Element, model: Model | None) -> Refusal | N
 
 
 BIPOLAR_TERMINALS = ("collector", "base", "emitter", "substrate")
-MOS_TERMINALS = ("drain", "gate", "source", "bulk")
-MESFET_TERMINALS = ("drain", "gate", "source")
+MOS_TERMINALS = ("drain", "gate", "source", "body")
+GATE_TERMINALS = ("drain", "gate", "source")
 BIPOLAR_INSTANCE = names("area areab areac m off icvbe icvce temp dtemp dt")
-MOS_INSTANCE = names("l w m ad as pd ps nrd nrs off temp dtemp icvds icvgs icvbs nf sa sb sd nbdp")
-MESFET_INSTANCE = names("area m l w off icvds icvgs temp dtemp td ts")
+MOS_INSTANCE = names(
+    """l w m ad as pd ps nrd nrs off nf sa sb sd sca scb scc sc min rbdb rbsb rbpb rbps rbpd delvto delvt0 mulu0 xgw
+    ngcon wnflag nqsmod trnqsmod acnqsmod rbodymod rgatemod geo geomod rgeomod temp dtemp nbdp"""
+)
+GATE_INSTANCE = names("area m l w off icvds icvgs temp dtemp td ts")
 
 
 def _bipolar(
@@ -223,19 +261,24 @@ def _bipolar(
 
 
 def _fet(
-    letter: str, types: tuple[str, ...], levels: tuple[int, ...], parameters: frozenset[str], words: str
+    letter: str,
+    types: tuple[str, ...],
+    levels: tuple[int, ...],
+    parameters: frozenset[str],
+    words: str,
+    refuse: Refuse = _never,
 ) -> Family:
     mos = letter == "M"
     return Family(
         letter=letter,
         words=words,
-        terminals=MOS_TERMINALS if mos else MESFET_TERMINALS,
+        terminals=MOS_TERMINALS if mos else GATE_TERMINALS,
         linearise=field_effect,
-        observe=_reading("id" if mos else "cd"),
-        refuse=_never,
+        observe=_reading(optional=CURRENTS[letter] + (THRESHOLDS if mos else ())),
+        refuse=refuse,
         model_types=types,
         levels=levels,
-        instance_parameters=MOS_INSTANCE if mos else MESFET_INSTANCE,
+        instance_parameters=MOS_INSTANCE if mos else GATE_INSTANCE,
         model_parameters=parameters,
         isolate=isolated(FET_INNER),
     )
@@ -250,10 +293,13 @@ MESFETS = (
     _fet("Z", ("nhfet", "phfet"), (5,), HFET_1, "heterostructure FET"),
     _fet("Z", ("nhfet", "phfet"), (6,), HFET_2, "heterostructure FET"),
 )
-OTHER_MOS = (
+OTHER_FETS = (
+    _fet("J", ("njf", "pjf"), (2,), LEVEL_2.model_parameters, "junction field-effect transistor", _without_dispersion),
+    _fet("M", ("nmos", "pmos"), BSIM3_LEVELS, BSIM3_PARAMETERS, "MOS transistor", _quasi_static_only),
+    _fet("M", ("nmos", "pmos"), BSIM4_LEVELS, BSIM4_PARAMETERS, "MOS transistor", _quasi_static_only),
     _fet("M", ("nmos", "pmos"), (4,), BSIM1, "MOS transistor"),
     _fet("M", ("nmos", "pmos"), (5,), BSIM2, "MOS transistor"),
-    _fet("M", ("nmos", "pmos"), (10, 58), BSIM_SOI, "MOS transistor on insulator"),
+    _fet("M", ("nmos", "pmos"), (10, 58), BSIM_SOI, "MOS transistor on insulator", _quasi_static_only),
     _fet("M", ("nmos", "pmos"), (68,), HISIM2, "MOS transistor"),
 )
-FITTED: tuple[Family, ...] = (QUASI_SATURATION, VBIC_BIPOLAR, HICUM_BIPOLAR, *MESFETS, *OTHER_MOS)
+FITTED: tuple[Family, ...] = (QUASI_SATURATION, VBIC_BIPOLAR, HICUM_BIPOLAR, *MESFETS, *OTHER_FETS)
