@@ -13,7 +13,7 @@ from tauledger.devices.parts import Part, capacitance, resistance, voltage_sourc
 from tauledger.hand.budget import signal_nodes
 from tauledger.hand.equivalent import upper_circuit
 from tauledger.hand.halves import counted, images
-from tauledger.hand.mirror import find_mirror, half_circuit, same_size
+from tauledger.hand.mirror import drive_of_halves, find_mirror, half_circuit
 from tauledger.hand.stages import stage_rows
 from tauledger.network.assemble import Network
 from tauledger.network.bands import Bands
@@ -135,7 +135,38 @@ def test_images_name_the_nodes_of_the_network() -> None:
     assert found["n"] == "p"
 
 
+def floating() -> tuple[Bands, tuple[Device, ...]]:
+    """The same pair between the ends of one floating source of 1 V, with 47 kohm from each base to ground."""
+    devices = tuple(
+        bipolar(f"Q{side}", (side, f"b{side}", f"e{side}"), r_b=100.0, c_pi=20e-12, c_mu=1e-12) for side in ("p", "n")
+    )
+    parts = [voltage_source("VIN", "sp", "sn", 1.0)]
+    for side in ("p", "n"):
+        parts += [
+            resistance(f"RS{side}", f"s{side}", f"b{side}", 500.0),
+            resistance(f"RB{side}", f"b{side}", "0", 47e3),
+        ]
+        parts += [resistance(f"RC{side}", side, "0", 5e3), resistance(f"RE{side}", f"e{side}", "t", 47.0)]
+        parts += [capacitance(f"CL{side}", side, "0", 5e-12)]
+    parts += [resistance("RT", "t", "0", 5e3), *(part for device in devices for part in device.parts)]
+    return bands_of(Network.from_parts(parts, output=Port("p", "n"))), devices
+
+
+def test_a_floating_source_drives_two_halves_with_half_of_it_each() -> None:
+    bands, devices = floating()
+    mirror = find_mirror(upper_circuit(bands, devices))
+    assert mirror is not None
+    assert mirror.axis == {"t", "sp"}
+    rows = stage_rows(bands, devices)
+    assert rows[0].gain_hand == near(rows[0].gain_exact, rel=1e-6)
+    assert math.prod(row.gain_exact or math.nan for row in rows) == near(bands.midband.gain.real)
+    first = next(row for row in signal_nodes(bands, devices) if row.name == "bp")
+    # the base sees R_S to the source's middle, which rests
+    assert "RSp" in first.lines[0].resistance.text
+    assert first.resistance_hand_ohm < 600.0
+
+
 def test_drives_of_different_size_have_no_common_amplitude() -> None:
-    assert same_size([0.5, -0.5, 0.5j]) == 0.5
-    assert same_size([0.5, 0.4]) is None
-    assert same_size([]) is None
+    assert drive_of_halves(pair()[0].network) == 0.5
+    assert drive_of_halves(floating()[0].network) == 0.5
+    assert drive_of_halves(pair(drive=-0.4)[0].network) is None

@@ -32,12 +32,15 @@ from tauledger.network.assemble import Network
 from tauledger.network.bands import Bands
 from tauledger.network.gain_setting import impedance_below
 
+ROUNDING = 1e-12
+
 
 class EquivalentCircuit(Struct, frozen=True):
     """Resistors, cells and open capacitances between hand nodes, and the exact matrices on the same nodes.
 
     at: every node of the whole network → its hand node, "0" for ground, supplies and driven nodes. driven: those
-    of the whole network's nodes that a source moves. members: hand node → nodes of the whole network, file order.
+    of the whole network's nodes that a source moves away from their hand node. members: hand node → nodes of the whole
+    network, file order.
     nodes: the n live hand nodes. impedance Z: (n, n) ohm, input nulled. whole: the same, complex, at s_mid, which is 0
     but where capacitors set the gain; impedance is then Re Z of the poles above s_mid. voltage x, adjoint λ, injected:
     (n,) complex; injected is the drive as a Norton current into each live node, A. response H.
@@ -163,7 +166,7 @@ def equivalent_circuit(
     at = {node: hand[upper] for node, upper in merged.items()}
     nodes = tuple(dict.fromkeys(hand[node] for node in order if hand[node] != GROUND))
     solved = _solve(network, hand, nodes, s)
-    moved = {node for node, v in zip(order[1:], solved.full_voltage, strict=False) if hand[node] == GROUND and v}
+    moved = {node for node, v in zip(order[1:], solved.forced, strict=False) if v}
     members: dict[str, list[str]] = {}
     for node, h in at.items():
         members.setdefault(h, []).append(node)
@@ -203,7 +206,7 @@ def equivalent_circuit(
 class _Solved(Struct, frozen=True):
     impedance: NDArray[np.float64]
     whole: NDArray[np.complex128]
-    full_voltage: NDArray[np.complex128]
+    forced: NDArray[np.complex128]
     voltage: NDArray[np.complex128]
     adjoint: NDArray[np.complex128]
     injected: NDArray[np.complex128]
@@ -234,17 +237,18 @@ def _solve(network: Network, hand: Mapping[str, str], nodes: tuple[str, ...], s:
         groups[k, rows] = 1.0
         first.append(rows[0])
     pick = np.ix_(first, first)
-    moved = np.array(
-        [k < network.n_nodes and hand[network.unknowns[k]] == GROUND for k in range(network.size)], dtype=bool
-    )
     g[lonely, lonely] = 0.0
     source_current = np.where(np.arange(network.size) < network.n_nodes, network.drive, 0.0)
-    injected = groups @ (source_current - g @ np.where(moved, x, 0.0))
+    # Sources join nodes that they hold at different voltages: against ground, or, where one floats, about their mean.
+    mean = groups @ x / groups.sum(axis=1)
+    forced = np.where(np.arange(network.size) < network.n_nodes, x - groups.T @ mean, 0.0)
+    forced[np.abs(forced) <= ROUNDING * np.abs(x).max(initial=0.0)] = 0.0
+    injected = groups @ (source_current - g @ forced)
     return _Solved(
         impedance=np.asarray(faced.real[pick], dtype=float),
         whole=np.asarray(inverse[pick], dtype=complex),
-        full_voltage=x,
-        voltage=x[first],
+        forced=np.asarray(forced, dtype=complex),
+        voltage=np.asarray(mean, dtype=complex),
         adjoint=adjoint[first],
         injected=np.asarray(injected, dtype=complex),
         response=response,

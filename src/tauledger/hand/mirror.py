@@ -7,7 +7,7 @@ Hurst, Lewis and Meyer, Analysis and Design of Analog Integrated Circuits, 5th e
 from __future__ import annotations
 
 import math
-from collections.abc import Collection, Mapping
+from collections.abc import Mapping
 
 import numpy as np
 from msgspec import Struct
@@ -16,8 +16,10 @@ from msgspec.structs import replace
 from tauledger.circuit import GROUND
 from tauledger.hand.elements import Capacitor, Cell, Resistor
 from tauledger.hand.equivalent import EquivalentCircuit, adjacency
+from tauledger.network.assemble import Network
 
 EQUAL = 1e-6
+ROUNDING = 1e-9
 
 
 class Mirror(Struct, frozen=True):
@@ -135,8 +137,8 @@ def _balanced(circuit: EquivalentCircuit, image: Mapping[str, str]) -> bool:
     """Say whether resistances and time constants are the same after every node is exchanged for its image."""
     order = [circuit.row[image[node]] for node in circuit.nodes]
     for matrix in (circuit.impedance, circuit.products):
-        size = np.sqrt(np.abs(np.outer(np.diagonal(matrix), np.diagonal(matrix)))) + EQUAL * np.abs(matrix).max()
-        if bool(np.any(np.abs(matrix[np.ix_(order, order)] - matrix) > EQUAL * size)):
+        size = EQUAL * np.sqrt(np.abs(np.outer(np.diagonal(matrix), np.diagonal(matrix))))
+        if bool(np.any(np.abs(matrix[np.ix_(order, order)] - matrix) > size + ROUNDING * np.abs(matrix).max())):
             return False
     return True
 
@@ -200,9 +202,13 @@ def _capacitor(capacitor: Capacitor, mirror: Mirror) -> Capacitor | None:
     return replace(capacitor, a=_end(a, mirror), b=_end(b, mirror))
 
 
-def same_size(amplitudes: Collection[complex]) -> float | None:
-    """Give the size of all amplitudes where they have one and the same within 1e-6, else None."""
-    sizes = [abs(value) for value in amplitudes]
+def drive_of_halves(network: Network) -> float | None:
+    """Give the amplitude that drives each half, a floating source half to either; None where they differ by 1e-6."""
+    sizes = [
+        abs(amplitude) / (1.0 if GROUND in part.nodes else 2.0)
+        for part in network.parts
+        if part.kind.endswith("source") and (amplitude := network.amplitude(part))
+    ]
     if not sizes or any(not math.isclose(size, sizes[0], rel_tol=EQUAL) for size in sizes):
         return None
     return sizes[0]

@@ -15,7 +15,7 @@ from tauledger.hand.equivalent import EquivalentCircuit, upper_circuit
 from tauledger.hand.estimate import StageRow
 from tauledger.hand.looking_in import looking_in
 from tauledger.hand.miller import hand_gain, signal_gain
-from tauledger.hand.mirror import find_mirror, half_circuit, same_size
+from tauledger.hand.mirror import drive_of_halves, find_mirror, half_circuit
 from tauledger.hand.nodes import Group, crossing, groups, node_name
 from tauledger.hand.roles import follower_of, leaves_at, role_of
 from tauledger.network.bands import Bands
@@ -50,7 +50,7 @@ def stage_rows(bands: Bands, devices: tuple[Device, ...]) -> tuple[StageRow, ...
     for group in ordered:
         node = group.nodes[0]
         if before is None:
-            by_hand, exact = _from_source(bands, circuit, node)
+            by_hand, exact = _from_source(bands, circuit, node, halves=mirror is not None)
         else:
             exact = _ratio(circuit, before, node)
             solved = signal_gain if circuit.s_mid else _hand_value
@@ -103,14 +103,17 @@ def _ratio(circuit: EquivalentCircuit, before: str, node: str) -> float:
     return float((circuit.voltage[circuit.row[node]] / circuit.voltage[circuit.row[before]]).real)
 
 
-def _from_source(bands: Bands, circuit: EquivalentCircuit, node: str) -> tuple[float | None, float | None]:
+def _from_source(
+    bands: Bands, circuit: EquivalentCircuit, node: str, *, halves: bool
+) -> tuple[float | None, float | None]:
     """Give hand and exact gain from the source, by the Norton current that it forces into the first node."""
     driven = [amplitude for amplitude in bands.network.amplitudes.values() if amplitude]
     k = circuit.row[node]
-    if len(driven) == 1:
+    amplitude: complex
+    if len(driven) == 1 and not halves:
         amplitude = driven[0]
     else:
-        size = same_size(driven)
+        size = drive_of_halves(bands.network) if halves else None
         if size is None or not circuit.injected[k]:
             return None, None
         amplitude = math.copysign(size, circuit.injected[k].real)
