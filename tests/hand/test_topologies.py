@@ -6,12 +6,14 @@ from collections.abc import Mapping
 
 import pytest
 
-from cells import bipolar, board, near
+from cells import bands_of, bipolar, board, near
+from tauledger.circuit import Port
 from tauledger.devices.family import Device, Terminal, Transconductor
-from tauledger.devices.parts import Part, conductance, resistance, transconductance
+from tauledger.devices.parts import Part, conductance, resistance, transconductance, voltage_source
 from tauledger.hand.budget import signal_nodes
 from tauledger.hand.estimate import StageRow
 from tauledger.hand.stages import stage_rows
+from tauledger.network.assemble import Network
 from tauledger.network.bands import Bands
 
 Board = tuple[Bands, tuple[Device, ...]]
@@ -192,3 +194,16 @@ def test_bootstrapping_is_seen_through_the_emitters_own_resistance() -> None:
 def test_series_resistances_of_a_device_are_listed_as_the_device() -> None:
     made = board(SOURCE, bipolar("Q1", ("out", "b", "0"), r_b=100.0, r_c=3.0), LOAD)
     assert stage_rows(*made)[-1].elements == ("RL", "Q1")
+
+
+def test_two_drives_in_opposite_phase_count_as_their_difference() -> None:
+    """A pair with mirror load is not balanced: the one node that all signal crosses is the output."""
+    devices = (q("Q1", "m", "bp", "t"), q("Q2", "out", "bn", "t"), q("Q3", "m", "m", "0"), q("Q4", "out", "m", "0"))
+    parts = [voltage_source("VP", "sp", "0", 0.5), voltage_source("VN", "sn", "0", -0.5), TAIL]
+    parts += [r("RP", "sp", "bp", 1e3), r("RN", "sn", "bn", 1e3), r("RL", "out", "0", 50e3)]
+    parts += [part for device in devices for part in device.parts]
+    bands = bands_of(Network.from_parts(parts, output=Port("out")))
+    (only,) = stage_rows(bands, devices)
+    assert (only.node, only.gain_hand) == ("out", None)
+    assert only.gain_exact == near(bands.midband.gain.real)
+    assert "mirror load Q4" in only.around

@@ -23,6 +23,7 @@ from tauledger.network.bands import Bands
 CROSSED_BY_ALL = (0.9, 1.1)
 PART_OF_A_STAGE = 0.001
 WORTH_A_REASON = 0.02
+OPPOSITE = 1e-6
 
 
 def stage_rows(bands: Bands, devices: tuple[Device, ...]) -> tuple[StageRow, ...]:
@@ -30,7 +31,8 @@ def stage_rows(bands: Bands, devices: tuple[Device, ...]) -> tuple[StageRow, ...
 
     gain_exact is the voltage ratio to the node before, gain_hand the hand gain driven from that node; for the first
     node both count from the source: V/V where one voltage source drives, ohm where one current source does, None where
-    several do. Of a balanced circuit the half circuit is listed, its first gain counted from its own source.
+    several do; two in opposite phase count as their difference. Of a balanced circuit the half circuit is listed, its
+    first gain counted from its own source. gain_hand is None at a first node that no source reaches without a stage.
     Raises NetworkError where the mid-band circuit has no unique solution.
     """
     whole = upper_circuit(bands, devices)
@@ -112,14 +114,18 @@ def _from_source(
     amplitude: complex
     if len(driven) == 1 and not halves:
         amplitude = driven[0]
+    elif not halves and len(driven) == 2 and abs(driven[0] + driven[1]) <= OPPOSITE * abs(driven[0]):
+        amplitude = driven[0] - driven[1]
     else:
         size = drive_of_halves(bands.network) if halves else None
         if size is None or not circuit.injected[k]:
             return None, None
         amplitude = math.copysign(size, circuit.injected[k].real)
     exact = float((circuit.voltage[k] / amplitude).real)
+    if not circuit.injected[k]:
+        return None, exact
     seen = looking_in(circuit, node, node_name(circuit, node)).ohm
-    return float((circuit.injected[k] * seen / amplitude).real) or None, exact
+    return float((circuit.injected[k] * seen / amplitude).real), exact
 
 
 def _why(circuit: EquivalentCircuit, before: str | None, node: str, hand: float | None, exact: float | None) -> str:

@@ -86,7 +86,8 @@ def _stages(review: Review) -> str:
 def _stage(stage: Stage) -> str:
     """Say what one stage is, out of what, and why its gain by hand is not the exact one where it is not."""
     of = f" {stage.owner}" if stage.owner else ""
-    gains = f"{number(stage.gain_hand, '')} by hand, {number(stage.gain_exact, '')} exact"
+    by_hand = "" if stage.gain_hand is None else f"{number(stage.gain_hand, '')} by hand, "
+    gains = f"{by_hand}{number(stage.gain_exact, '')} exact"
     around = f"; {', '.join(stage.around)}" if stage.around else ""
     why = f"; {stage.why}" if stage.why else ""
     there = f" ({stage.image} alike)" if stage.image else ""
