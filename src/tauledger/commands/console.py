@@ -5,10 +5,13 @@ from __future__ import annotations
 import math
 import os
 import re
+import shutil
 import sys
 from pathlib import Path
 
 from tauledger.errors import InputError
+
+NARROWEST, WIDEST = 40, 80
 
 
 def hertz(option: str, text: str) -> float:
@@ -35,6 +38,11 @@ def colored(choice: str) -> bool:
     if os.environ.get("FORCE_COLOR"):
         return True
     return sys.stdout.isatty() and os.environ.get("TERM") != "dumb"
+
+
+def page_width() -> int:
+    """Give the columns of the page: those of the terminal or of $COLUMNS between 40 and 80, 80 where neither tells."""
+    return min(max(shutil.get_terminal_size((WIDEST, 24)).columns, NARROWEST), WIDEST)
 
 
 def can_show_symbols(encoding: str) -> bool:

@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING
 
 import click
 
-from tauledger.commands.console import can_show_symbols, colored, hertz, print_bytes, writable, write
+from tauledger.commands.console import can_show_symbols, colored, hertz, page_width, print_bytes, writable, write
 from tauledger.commands.reports import report_files, review_each, write_report
 from tauledger.errors import ExitCode, InputError
 from tauledger.report.progress import progress
@@ -100,6 +100,7 @@ def review_command(
             found,
             color=colored(color),
             unicode=can_show_symbols(encoding),
+            width=page_width(),
             verbose=verbose,
             working=_nodes(found, working),
         )

@@ -50,6 +50,7 @@ _ASCII = {
     "½": "1/2",
     "°": " deg",
     "†": "*",
+    "‡": "**",
     "“": '"',
     "”": '"',
     "’": "'",
@@ -172,6 +173,10 @@ def _table(table: Table, *, width: int, unicode: bool) -> list[Line]:
     head = tuple(spell(cell, unicode=unicode) for cell in table.head)
     names = [cells(row.cells[0]) for row in rows] + [cells(head[0]) - table.indent]
     others = [max([cells(head[k])] + [cells(row.cells[k]) for row in rows]) for k in range(1, len(table.align))]
+    fitting = _that_fit(others, width - table.indent)
+    if fitting < len(others):
+        parts = (_columns(table, range(1, fitting + 1)), _columns(table, range(fitting + 1, len(others) + 1)))
+        return [line for part in parts for line in _table(part, width=width, unicode=unicode)]
     room = {gap: width - table.indent - sum(others) - gap * len(others) for gap in (2, 1)}
     gap = 2 if max(names) <= room[2] else 1
     first = max((size for size in names if size <= room[gap]), default=0)
@@ -188,6 +193,25 @@ def _table(table: Table, *, width: int, unicode: bool) -> list[Line]:
             numbers = ("", *row.cells[1:])
         lines.append(Line(indent + _join(numbers, table.align, [first, *others], gap), row.style))
     return lines
+
+
+def _that_fit(sizes: Sequence[int], room: int) -> int:
+    """Count the columns that fit beside each other, at least one."""
+    taken = 0
+    for k, size in enumerate(sizes):
+        taken += size + 1
+        if taken > room and k:
+            return k
+    return len(sizes)
+
+
+def _columns(table: Table, kept: Iterable[int]) -> Table:
+    """Give a table with its first column and the named ones of the others; rows that say nothing there are left out."""
+    columns = (0, *kept)
+    rows = tuple(Row(tuple(row.cells[k] for k in columns), row.style) for row in table.rows)
+    told = tuple(row for row in rows if any(row.cells[1:]))
+    align, head = "".join(table.align[k] for k in columns), tuple(table.head[k] for k in columns)
+    return Table(align, head, told, table.indent)
 
 
 def _join(texts: Sequence[str], align: str, widths: Sequence[int], gap: int) -> str:

@@ -8,6 +8,7 @@ from collections.abc import Mapping
 from tauledger.record import CapacitanceTerm, NodeRow, PartRow, Review, UpperBudget, Working
 from tauledger.report.layout import Block, Prose, Row, Section, Table
 from tauledger.report.wording import (
+    LOOP,
     NO_NUMBER,
     SOLVED,
     amount,
@@ -45,8 +46,10 @@ def upper_budget(review: Review, *, verbose: bool = False) -> Section:
     title = f"UPPER EDGE f_H, {len(shown)} of {len(first)} nodes" if hidden else "UPPER EDGE f_H, by node"
     head = (title, "R", "C", "R·C hand", "exact", "+1 pF")
     blocks: list[Block] = [Table("lrrrrr", head, tuple(rows))]
-    if any(node.working and node.working.source == "solved" for node in shown):
+    if any(_mark(node) == SOLVED for node in shown):
         blocks.append(Prose("solved exactly: no hand rule fits this node", lead=f"  {SOLVED} "))
+    if any(_mark(node) == LOOP for node in shown):
+        blocks.append(Prose("R0/(1 + T) or branches by 1 − K, with T and K of the solved network", lead=f"  {LOOP} "))
     if review.budget.upper:
         blocks.append(Prose(_sums(review.budget.upper, halves=any(n.image for n in first)), lead="  "))
     if verbose:
@@ -90,18 +93,23 @@ def _whole(review: Review) -> float:
 
 
 def _node_row(node: NodeRow, f_high: float | None) -> Row:
-    solved = SOLVED if node.working and node.working.source == "solved" else ""
     cost = node.per_farad.f_high
     return Row(
         (
             node_title(node),
-            number(node.resistance_hand_ohm, "Ω") + solved,
+            number(node.resistance_hand_ohm, "Ω") + _mark(node),
             number(node.capacitance_f, "F"),
             number(node.time_constant_s, "s"),
             number(node.time_constant_exact_s, "s"),
             move(cost * _PICOFARAD / f_high) if cost is not None and f_high else NO_NUMBER,
         )
     )
+
+
+def _mark(node: NodeRow) -> str:
+    """Mark a resistance that paper alone does not give."""
+    source = node.working.source if node.working else "rule"
+    return {"solved": SOLVED, "loop": LOOP, "branch": LOOP}.get(source, "")
 
 
 def _term_rows(node: NodeRow, working: Working, titles: Mapping[str, str], *, least: float) -> list[Row]:

@@ -18,6 +18,7 @@ _PART_UNIT |= {"mutual inductance": "H"}
 EDGE = {"f_high": "f_H", "f_low": "f_L"}
 
 SOLVED = "†"
+LOOP = "‡"
 NO_NUMBER = "–"
 _NOTHING = 5e-5
 
