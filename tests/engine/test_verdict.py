@@ -58,7 +58,7 @@ def test_a_model_parameter_read_past_is_told_and_no_failure() -> None:
     )
     verdict = judge(load, QUIET, has_result=True, names=NAMES)
     assert verdict.state == "sound"
-    assert verdict.says == (said,)
+    assert verdict.says == ("unrecognized parameter (foo) - ignored",)
 
 
 @pytest.mark.parametrize(
