@@ -2,13 +2,17 @@
 
 from __future__ import annotations
 
+import re
+
 import pytest
 
 import boards
 from cells import near
+from tauledger.devices.parts import capacitance, resistance
 from tauledger.pipeline import review_network
 from tauledger.record import Review
 from tauledger.report.layout import lay_out
+from tauledger.report.upper import upper_budget
 from tauledger.report.working import find_nodes, workings
 
 
@@ -65,3 +69,30 @@ def test_one_plus_one_over_a_is_named_where_it_is_the_reason() -> None:
     for line in lines:
         off = abs(line.time_constant_s - line.time_constant_exact_s) > 0.02 * abs(line.time_constant_exact_s)
         assert bool(line.why) == off
+
+
+def test_what_is_added_at_a_node_is_small_enough_for_first_order() -> None:
+    """At an integrated output 1 pF would halve f_H; the column says what a tenth of it does."""
+    small = review_network(boards.cascode())
+    section = upper_budget(small)
+    head = lay_out([section], width=80, unicode=True, page=60)[0].text
+    assert head.endswith(("fF", "aF"))
+    large = upper_budget(review_network(boards.common_emitter_8k()))
+    assert lay_out([large], width=80, unicode=True, page=60)[0].text.endswith("+1 pF")
+    for line in lay_out([section], width=80, unicode=True, page=60)[1:]:
+        cost = re.search(r"[-+](\d+(?:\.\d+)?) %$", line.text)
+        assert cost is None or float(cost.group(1)) <= 10.0
+
+
+def test_resistances_with_a_solved_part_are_marked() -> None:
+    """Shunt feedback: the output's resistance is R0/(1 + T), and T is not from paper."""
+    network = boards.driven(
+        resistance("RS", "s", "b", 1e3),
+        boards.stage("Q1", "b", "out", "0", 0.04, r_pi=3.75e3, r_o=80e3, c_mu=1e-12),
+        resistance("RF", "out", "b", 10e3),
+        resistance("RL", "out", "0", 2e3),
+        capacitance("CL", "out", "0", 100e-12),
+    )
+    lines = [line.text for line in lay_out([upper_budget(review_network(network))], width=80, unicode=True, page=60)]
+    assert any("output (out)" in line and "‡" in line for line in lines)
+    assert any(line.startswith("  ‡ R0/(1 + T)") for line in lines)

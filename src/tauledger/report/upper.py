@@ -20,6 +20,8 @@ from tauledger.report.wording import (
 from tauledger.report.working import node_title, workings
 
 _PICOFARAD = 1e-12
+_LEAST_PROBE = 1e-17
+_FIRST_ORDER = 0.1
 _MATTERS = 0.01
 _WORTH_A_ROW = 0.02
 _NODES, _TERMS, _SHARES = 6, 4, 5
@@ -38,13 +40,14 @@ def upper_budget(review: Review, *, verbose: bool = False) -> Section:
         hidden += max(len(shown) - _NODES, 0)
         shown = sorted(shown, key=lambda node: -abs(node.time_constant_s or 0.0))[:_NODES]
     f_high = review.f_high.exact_hz if review.f_high else None
+    probe = _probe(shown, f_high)
     rows: list[Row] = []
     for node in shown:
-        rows.append(_node_row(node, f_high))
+        rows.append(_node_row(node, f_high, probe))
         if node.working:
             rows.extend(_term_rows(node, node.working, titles, least=0.0 if verbose else _WORTH_A_ROW * _whole(review)))
     title = f"UPPER EDGE f_H, {len(shown)} of {len(first)} nodes" if hidden else "UPPER EDGE f_H, by node"
-    head = (title, "R", "C", "R·C hand", "exact", "+1 pF")
+    head = (title, "R", "C", "R·C hand", "exact", f"+{number(probe, 'F', 1)}")
     blocks: list[Block] = [Table("lrrrrr", head, tuple(rows))]
     if any(_mark(node) == SOLVED for node in shown):
         blocks.append(Prose("solved exactly: no hand rule fits this node", lead=f"  {SOLVED} "))
@@ -92,7 +95,19 @@ def _whole(review: Review) -> float:
     return sum(abs(row.time_constant_s or 0.0) for row in review.nodes if row.in_path and not row.second)
 
 
-def _node_row(node: NodeRow, f_high: float | None) -> Row:
+def _probe(nodes: list[NodeRow], f_high: float | None) -> float:
+    """Choose what is added at each node, 1 pF or a tenth, a hundredth … of it, so that f_H moves by 10 % at most.
+
+    The column is first order in it: of 1 pF at an integrated node it would say what no probe does.
+    """
+    costs = [abs(node.per_farad.f_high or 0.0) for node in nodes]
+    probe = _PICOFARAD
+    while f_high and probe > _LEAST_PROBE and max(costs, default=0.0) * probe > _FIRST_ORDER * f_high:
+        probe /= 10.0
+    return probe
+
+
+def _node_row(node: NodeRow, f_high: float | None, probe: float) -> Row:
     cost = node.per_farad.f_high
     return Row(
         (
@@ -101,7 +116,7 @@ def _node_row(node: NodeRow, f_high: float | None) -> Row:
             number(node.capacitance_f, "F"),
             number(node.time_constant_s, "s"),
             number(node.time_constant_exact_s, "s"),
-            move(cost * _PICOFARAD / f_high) if cost is not None and f_high else NO_NUMBER,
+            move(cost * probe / f_high) if cost is not None and f_high else NO_NUMBER,
         )
     )
 
