@@ -170,3 +170,25 @@ def test_non_quasi_static_ac_is_refused_at_its_model(tmp_path: Path) -> None:
     path.write_text(CASES["bsim4 saturation"].replace("rgatemod=3", "acnqsmod=1"))
     with pytest.raises(NetlistError, match=r"stage\.cir:\d+:\d+: .*ACNQSMOD"):
         elaborate(read(path), NO_CHANGE)
+
+
+def test_worst_agreement_per_family_is_what_the_developers_page_keeps(
+    tmp_path: Path, engine: Engine, pytestconfig: pytest.Config, capsys: pytest.CaptureFixture[str]
+) -> None:
+    """With --write-tables the table is printed; without, one case of a family is enough."""
+    families: dict[str, list[str]] = {}
+    for case in CASES:
+        families.setdefault(case.split()[0], []).append(case)
+    whole = pytestconfig.getoption("--write-tables")
+    worst: dict[str, float] = {}
+    for family, cases in families.items():
+        for case in cases if whole else cases[:1]:
+            found = solved(CASES[case], tmp_path, engine).agreement
+            assert found is not None
+            worst[family] = max(worst.get(family, 0.0), found.max_relative_error)
+    if whole:
+        with capsys.disabled():
+            print("\n| fitted family | cases | worst agreement |\n|---|---|---|")
+            for family, error in worst.items():
+                print(f"| {family} | {len(families[family])} | {error:.0e} |")
+    assert max(worst.values()) <= AGREES
