@@ -1,0 +1,105 @@
+"""The equivalent circuit: it has the gain of its stage, a value at every element, and nothing written over another."""
+
+from __future__ import annotations
+
+import itertools
+import re
+from xml.etree import ElementTree
+
+import pytest
+from msgspec.structs import replace
+
+from report.literal import ECHO_PREAMP
+from tauledger.report.drawing import symbols
+from tauledger.report.drawing.stage import MOST_STAGES, drawn_stages
+
+LETTER_PX = 7.2
+
+
+def texts(svg: str) -> list[tuple[float, float, str, str]]:
+    """Give x, y, anchor and words of every text."""
+    return [
+        (float(text.get("x", "")), float(text.get("y", "")), text.get("text-anchor", ""), text.text or "")
+        for text in ElementTree.fromstring(svg).iter("text")
+    ]
+
+
+def drawings() -> tuple[str, ...]:
+    return tuple(svg for _, svg in drawn_stages(ECHO_PREAMP))
+
+
+def test_source_and_each_stage_have_a_drawing() -> None:
+    assert [heading for heading, _ in drawn_stages(ECHO_PREAMP)] == [
+        "Source to base of Q1 (b)",
+        "Output Q1: base of Q1 (b) to output, collector of Q1 (out)",
+    ]
+
+
+def test_gm_times_r_is_the_gain_of_the_stage() -> None:
+    told = [words for *_, words in texts(drawings()[1])]
+    siemens = float(told[told.index("Gm·v(b)") + 1].removesuffix(" mS")) * 1e-3
+    ohm = float(told[told.index("R") + 1].removesuffix(" kΩ")) * 1e3
+    assert siemens * ohm == pytest.approx(179.1, rel=5e-3)
+
+
+def test_the_arrow_of_an_inverting_stage_points_down() -> None:
+    up = symbols.controlled_current(50.0, 0.0, 100.0, down=False)
+    down = symbols.controlled_current(50.0, 0.0, 100.0, down=True)
+    assert down in drawings()[1].replace("\n", "") or up != down
+    first, second = ECHO_PREAMP.stages
+    follower = replace(ECHO_PREAMP, stages=(first, replace(second, gain_hand=0.9)))
+    assert drawn_stages(follower)[1][1] != drawings()[1]
+
+
+@pytest.mark.parametrize(
+    ("drawing", "name", "value"),
+    [
+        (0, "R_Th", "428.0 Ω"),
+        (0, "C_μ of Q1", "2.16 pF × 180"),
+        (0, "C_π of Q1", "54.8 pF × 0.983"),
+        (1, "C", "443 pF"),
+        (1, "R", "1.704 kΩ"),
+        (1, "CL", "50.0 pF"),
+    ],
+)
+def test_every_element_has_its_value(drawing: int, name: str, value: str) -> None:
+    told = [words for *_, words in texts(drawings()[drawing])]
+    assert told[told.index(name) + 1] == value
+
+
+def test_a_resistor_is_a_rectangle_and_a_capacitor_two_plates() -> None:
+    """IEC 60617: 04-01-01 and 04-02-01 (from memory)."""
+    assert "<rect" in symbols.resistor_down(0.0, 0.0, 100.0)
+    assert "<rect" in symbols.resistor_across(0.0, 0.0, 100.0)
+    plates = re.search(r'class="plate" d="([^"]*)"', symbols.capacitor_down(0.0, 0.0, 100.0))
+    assert plates is not None
+    assert plates.group(1).count("H") == 2
+
+
+@pytest.mark.parametrize("svg", drawings(), ids=["input", "stage"])
+def test_nothing_is_written_over_another_or_beyond_the_edge(svg: str) -> None:
+    root = ElementTree.fromstring(svg)
+    _, _, width, height = (float(number) for number in root.get("viewBox", "").split())
+    boxes = []
+    for x, y, anchor, words in texts(svg):
+        long = LETTER_PX * len(words)
+        left = {"start": x, "middle": x - long / 2.0, "end": x - long}[anchor]
+        assert left >= 0.0
+        assert left + long <= width
+        assert 0.0 < y <= height
+        boxes.append((left, left + long, y - 10.0, y))
+    for (a, b, top, bottom), (c, d, above, below) in itertools.combinations(boxes, 2):
+        assert b <= c or d <= a or bottom <= above or below <= top
+
+
+def test_networks_that_are_no_chain_have_no_drawing() -> None:
+    first, second = ECHO_PREAMP.stages
+    assert drawn_stages(replace(ECHO_PREAMP, stages=())) == ()
+    assert drawn_stages(replace(ECHO_PREAMP, stages=(first, replace(second, node="elsewhere")))) == ()
+    assert drawn_stages(replace(ECHO_PREAMP, stages=(first, replace(second, image="outn")))) == ()
+    assert drawn_stages(replace(ECHO_PREAMP, stages=(replace(first, gain_hand=None), second))) == ()
+
+
+def test_a_long_chain_is_drawn_as_far_as_its_caption_says() -> None:
+    first, second = ECHO_PREAMP.stages
+    assert len(drawn_stages(replace(ECHO_PREAMP, stages=(first, *(40 * (second,)))))) == MOST_STAGES
