@@ -12,7 +12,7 @@ from tauledger.causes import notes
 from tauledger.causes.catalogue import find_notes
 from tauledger.causes.evidence import Evidence
 from tauledger.devices.family import Device, Terminal, Transconductor
-from tauledger.devices.parts import capacitance, resistance
+from tauledger.devices.parts import capacitance, inductance, mutual_inductances, resistance
 from tauledger.network.assemble import Network
 
 
@@ -46,6 +46,29 @@ def stage(*, source: float | None = 600.0, r_b: float = 45.0) -> Network:
 
 def test_an_ordinary_stage_has_no_notes() -> None:
     assert ids(evidence(stage(), devices=(transistor("b", "Q1'b"),))) == []
+
+
+def test_what_a_family_says_of_its_device_is_told() -> None:
+    said = replace(transistor("b", "Q1'b"), remarks=("Q1 is late",))
+    note = notes.as_rebuilt(evidence(stage(), devices=(said,)))
+    assert note is not None
+    assert (note.where, note.says) == ("Q1", "Q1 is late")
+    assert notes.as_rebuilt(evidence(stage(), devices=(transistor("b", "Q1'b"),))) is None
+
+
+def test_coupled_inductors_are_called_coupled_and_not_tuned() -> None:
+    network = boards.driven(
+        [resistance("RS", "s", "b", 50.0)],
+        [inductance("L1", "b", "0", 1e-3), inductance("L2", "out", "0", 1e-3)],
+        [*mutual_inductances("K1", "L1", "L2", ("b", "0", "out", "0"), 0.9e-3)],
+        resistance("RL", "out", "0", 50.0),
+    )
+    found = evidence(network)
+    note = notes.coupled(found)
+    assert note is not None
+    assert note.where == "L1, L2"
+    assert notes.tuned(found) is None
+    assert notes.coupled(evidence(stage())) is None
 
 
 def test_ideal_drive_names_the_base_resistance_that_is_left() -> None:

@@ -49,8 +49,10 @@ NOTES: tuple[Callable[[Evidence], Note | None], ...] = (
     notes.ill_conditioned_below,
     notes.neither_short_nor_open,
     notes.tuned,
+    notes.coupled,
     notes.ideal_drive,
     notes.model_without_charge,
+    notes.as_rebuilt,
     region_where_signal_passes,
 )
 

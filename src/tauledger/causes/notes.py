@@ -145,7 +145,10 @@ def neither_short_nor_open(evidence: Evidence) -> Note | None:
 
 def tuned(evidence: Evidence) -> Note | None:
     """Reactances in resonance at mid-band."""
-    names = [name for name, kind in evidence.bands.class_of.items() if kind == "tuned"]
+    parts = evidence.bands.network.parts
+    tied = {owner for part in parts if part.kind == "mutual inductance" for owner in (part.owner, *part.references)}
+    loose = {part.name for part in parts if part.owner not in tied}
+    names = [name for name, kind in evidence.bands.class_of.items() if kind == "tuned" and name in loose]
     if not names:
         return None
     told = ", ".join(names)
@@ -154,6 +157,20 @@ def tuned(evidence: Evidence) -> Note | None:
         told,
         f"{told} {'is' if len(names) == 1 else 'are'} in resonance at "
         f"{in_hertz(evidence.bands.midband.frequency_hz)}: neither short nor open, no time constant by hand",
+    )
+
+
+def coupled(evidence: Evidence) -> Note | None:
+    """Coupled inductors, which are taken as neither short nor open."""
+    pairs = [part.references for part in evidence.bands.network.parts if part.kind == "mutual inductance"]
+    names = ", ".join(dict.fromkeys(name for pair in pairs for name in pair))
+    if not names:
+        return None
+    return Note(
+        "coupled",
+        names,
+        f"{names} are coupled: neither short nor open at mid-band, they count in the response, the band edges and "
+        "their shares, and have no time constant by hand",
     )
 
 
@@ -193,6 +210,15 @@ def model_without_charge(evidence: Evidence) -> Note | None:
         f"the model of {names} has no capacitance (no junction capacitance, no transit time): f_H leaves out the "
         "device altogether and comes out too high",
     )
+
+
+def as_rebuilt(evidence: Evidence) -> Note | None:
+    """What the device families say of how they rebuilt a device."""
+    told = [device for device in evidence.devices if device.remarks]
+    if not told:
+        return None
+    says = "; ".join(remark for device in told for remark in device.remarks)
+    return Note("as-rebuilt", ", ".join(device.name for device in told), says)
 
 
 def _ill_conditioned(evidence: Evidence, edge: EdgeEvidence, *, upwards: bool) -> Note | None:

@@ -91,16 +91,17 @@ def _linearise(circuit: Circuit, element: Element, bias: Bias) -> Device:
     assert body is not None
     gm, g_o, g_mb = read["gm"], read["gds"], read["gmbs"]
     overlap = _overlap(element, bias)
+    charges = _charges(name, ends, body, read, overlap)
     parts = kept(
         (
             *series(name, ends, g_drain, g_source),
             *channel(name, ends, gm, g_o, g_mb),
             conductance(name, body, ends.inner_drain, read["gbd"], "g_db"),
             conductance(name, body, ends.inner_source, read["gbs"], "g_sb"),
-            *_charges(name, ends, body, read, overlap),
+            *charges,
         )
     )
-    at = {part.label: part.value for part in parts}
+    at = {part.label: part.value for part in charges}
     sign = -1.0 if is_p(model.type) else 1.0
     return Device(
         name=name,
@@ -113,7 +114,7 @@ def _linearise(circuit: Circuit, element: Element, bias: Bias) -> Device:
             gm=gm,
             g_mb=g_mb,
             g_o=g_o,
-            charges={label: at[label] for label in ("c_gs", "c_gd", "c_db", "c_sb") if label in at},
+            charges={label: at[label] for label in ("c_gs", "c_gd", "c_db", "c_sb")},
             gate_charge=read["cgg"] + sum(overlap.values()),
         ),
         terminals=ends.terminals(),

@@ -22,6 +22,7 @@ from tauledger.devices.parts import (
     transcapacitance,
     transconductance,
 )
+from tauledger.quantity import engineering
 from tauledger.solution import Bias, Observation
 
 BOLTZMANN = 1.380649e-23  # J/K, SI 2019
@@ -145,11 +146,12 @@ def _linearise(circuit: Circuit, element: Element, bias: Bias) -> Device:
 
     gm, g_pi, g_mu, g_o = read["gm"], read["gpi"], read["gmu"], read["go"]
     substrate_inner = ci if vertical_substrate(model) else bi
+    delay_s = excess_delay(model)
     parts = (
         conductance(name, b, bi, g_b, "g_b"),
         conductance(name, c, ci, g_c, "g_c"),
         conductance(name, e, ei, g_e, "g_e"),
-        *_transconductances(name, (ci, ei), (bi, ei), gm, g_o, excess_delay(model)),
+        *_transconductances(name, (ci, ei), (bi, ei), gm, g_o, delay_s),
         conductance(name, bi, ei, g_pi, "g_pi"),
         conductance(name, bi, ci, g_mu, "g_mu"),
         conductance(name, ci, ei, g_o, "g_o"),
@@ -158,6 +160,10 @@ def _linearise(circuit: Circuit, element: Element, bias: Bias) -> Device:
         capacitance(name, b, ci, read["cqbx"], "c_bx"),
         capacitance(name, substrate_inner, s, read["cqsub"], "c_sub"),
         transcapacitance(name, (bi, ei), (bi, ci), read["cexbc"], "cexbc"),
+    )
+    late = (
+        f"excess phase delays the collector current of {name} by {engineering(delay_s, 's')}: the response, the band "
+        "edges and their shares count it exactly, the table of poles as an all-pass, the time constants not at all"
     )
     kept = tuple(part for part in parts if part.value != 0.0 and not _shorted(part))
     v_ce = float(bias.voltages[element.nodes[0]] - bias.voltages[element.nodes[2]])
@@ -172,6 +178,7 @@ def _linearise(circuit: Circuit, element: Element, bias: Bias) -> Device:
         terminals=tuple(terminals),
         cell=Transconductor(name, bi, ei, ci, gm, _inverse(g_pi), _inverse(g_o)) if gm else None,
         parts=kept,
+        remarks=(late,) if delay_s else (),
         without_charge=not any(part.kind in ("capacitance", "transcapacitance") for part in kept),
     )
 
