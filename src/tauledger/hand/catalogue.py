@@ -34,7 +34,7 @@ LOOPS: tuple[Entry, ...] = (
         "one loop",
         "R = R0/(1 + T)",
         "one gm closes the loop; R0 with that gm at zero is reached by the rules; exact, T from the solved network",
-        "Blackman, Bell Syst. Tech. J. 22(3), 1943; asymptotic forms in Gray et al., ch. 8",
+        "Blackman, Bell Syst. Tech. J. 22(3), 1943 (from memory)",
     ),
     Entry(
         "loops and bridges",
@@ -55,7 +55,7 @@ LOOPS: tuple[Entry, ...] = (
         "half circuit",
         "axis at ground, bridging R/2 and 2·C",
         "both halves equal within 1e-6 and driven in opposite phase",
-        f"{GRAY}, sec. 3.5.5",
+        f"{GRAY}, sec. 3.5.5 (from memory)",
     ),
     Entry(
         "loops and bridges",

@@ -1,7 +1,7 @@
 """The half circuit: of a balanced circuit that is driven in opposite phase, one half says everything.
 
 What lies on the axis does not move and is ground; what leads across to its own mirror image is halved. Source: Gray,
-Hurst, Lewis and Meyer, Analysis and Design of Analog Integrated Circuits, 5th ed., 2009, sec. 3.5.5.
+Hurst, Lewis and Meyer, Analysis and Design of Analog Integrated Circuits, 5th ed., 2009, sec. 3.5.5 (from memory).
 """
 
 from __future__ import annotations
