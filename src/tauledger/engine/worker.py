@@ -15,6 +15,7 @@ import queue
 import shutil
 import sys
 import threading
+from collections.abc import Iterable
 from typing import Any
 
 from tauledger.engine.protocol import Message, receive, send
@@ -120,8 +121,8 @@ def bias(spice: Spice, request: Message) -> Message:
     run = spice.command("op")
     solved = spice.plot != "const"
     vectors = [_first(spice.vector(name)) if solved else None for name in request["vectors"]]
-    readings = [_readings(spice, device, asked) if solved else [] for device, asked in request["readings"]]
-    return {"load": load, "run": run, "vectors": vectors, "readings": readings}
+    read = readings(spice, request["readings"]) if solved else [[] for _ in request["readings"]]
+    return {"load": load, "run": run, "vectors": vectors, "readings": read}
 
 
 def sweep(spice: Spice, request: Message) -> Message:
@@ -169,12 +170,14 @@ def _ac(spice: Spice, request: Message) -> list[Message]:
     return answers
 
 
-def _readings(spice: Spice, device: str, asked: list[str]) -> list[float | None]:
-    """Read @device[…] in a plot of its own: in a plot that grows, ten thousand readings take seconds."""
-    spice.command("setplot new")
-    values = [_first(spice.vector(f"@{device}[{name}]")) for name in asked]
-    spice.command(f"destroy {spice.plot}")
-    return values
+def readings(spice: Spice, asked: Iterable[tuple[str, list[str]]]) -> list[list[float | None]]:
+    """Read @device[…] for (device, names) in a plot of its own each: in one that grows, 10,000 readings take seconds."""
+    found: list[list[float | None]] = []
+    for device, names in asked:
+        spice.command("setplot new")
+        found.append([_first(spice.vector(f"@{device}[{name}]")) for name in names])
+        spice.command(f"destroy {spice.plot}")
+    return found
 
 
 def _first(values: list[float] | None) -> float | None:

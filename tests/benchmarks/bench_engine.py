@@ -1,0 +1,63 @@
+"""How long reading all values of 1,000 devices takes beside the engine's own work: `pytest
+tests/benchmarks/bench_engine.py -s --benchmark-enable`.
+
+Bipolar transistors are set against ngspice's operating point, MOS transistors against load and operating point; the
+ratios are printed. Never a timed assertion: machines differ and are shared.
+"""
+
+from __future__ import annotations
+
+import statistics
+import time
+
+import pytest
+from pytest_benchmark.fixture import BenchmarkFixture
+
+from circuits import NPN, board
+from tauledger.circuit import Circuit, Model
+from tauledger.devices.catalogue import observations
+from tauledger.engine.deck import write_deck
+from tauledger.engine.worker import Spice, find_library, readings
+
+DEVICES = 1000
+ROUNDS = 7
+NMOS = Model("mx", "nmos", 1, (("vto", 0.7), ("kp", 6e-5), ("gamma", 0.5), ("tox", 2e-8), ("cgso", 2e-10)), 0, 0)
+
+
+def stages(kind: str) -> Circuit:
+    """1,000 stages on one supply, each with values of its own."""
+    cards = ["VCC vcc 0 5", "VB b 0 1"]
+    for k in range(DEVICES):
+        device = f"Q{k} c{k} b e{k} qn" if kind == "bipolar" else f"M{k} c{k} b e{k} 0 mx w=1e-5 l=1e-6"
+        cards += [f"RC{k} vcc c{k} {2000 + k}", device, f"RE{k} e{k} 0 {300 + k}"]
+    return board(*cards, models=(NPN, NMOS))
+
+
+@pytest.fixture(scope="module")
+def spice() -> Spice:
+    return Spice(find_library(""))
+
+
+@pytest.mark.parametrize("kind", ["bipolar", "MOS"])
+def test_reading_every_value_against_the_engine(kind: str, spice: Spice, benchmark: BenchmarkFixture) -> None:
+    circuit = stages(kind)
+    deck = write_deck(circuit)
+    asked = [(deck.elements[o.element.lower()], list(o.readings)) for o in observations(circuit)]
+    loads, solutions, reads = [], [], []
+    for _ in range(ROUNDS):
+        spice.command("remcirc")
+        spice.command("destroy all")
+        times = [time.perf_counter()]
+        for work in (lambda: spice.load(deck.text), lambda: spice.command("op"), lambda: readings(spice, asked)):
+            work()
+            times.append(time.perf_counter())
+        for kept, start, stop in zip((loads, solutions, reads), times, times[1:], strict=False):
+            kept.append(stop - start)
+    load, solved, read = (statistics.median(kept) for kept in (loads, solutions, reads))
+    beside, words = (solved, "operating point") if kind == "bipolar" else (load + solved, "load and operating point")
+    print(
+        f"\n{DEVICES} {kind}: load {load * 1e3:.0f} ms, operating point {solved * 1e3:.0f} ms, "
+        f"{sum(len(names) for _, names in asked)} readings {read * 1e3:.0f} ms = {read / beside:.2f} × {words}"
+    )
+    found = benchmark(readings, spice, asked)
+    assert all(value is not None for values in found for value in values)
