@@ -43,7 +43,7 @@ def test_reading_every_value_against_the_engine(kind: str, spice: Spice, benchma
     circuit = stages(kind)
     deck = write_deck(circuit)
     asked = [(deck.elements[o.element.lower()], list(o.readings)) for o in observations(circuit)]
-    loads, solutions, reads = [], [], []
+    spent: tuple[list[float], ...] = ([], [], [])
     for _ in range(ROUNDS):
         spice.command("remcirc")
         spice.command("destroy all")
@@ -51,9 +51,9 @@ def test_reading_every_value_against_the_engine(kind: str, spice: Spice, benchma
         for work in (lambda: spice.load(deck.text), lambda: spice.command("op"), lambda: readings(spice, asked)):
             work()
             times.append(time.perf_counter())
-        for kept, start, stop in zip((loads, solutions, reads), times, times[1:], strict=False):
+        for kept, start, stop in zip(spent, times, times[1:], strict=False):
             kept.append(stop - start)
-    load, solved, read = (statistics.median(kept) for kept in (loads, solutions, reads))
+    load, solved, read = (statistics.median(kept) for kept in spent)
     beside, words = (solved, "operating point") if kind == "bipolar" else (load + solved, "load and operating point")
     print(
         f"\n{DEVICES} {kind}: load {load * 1e3:.0f} ms, operating point {solved * 1e3:.0f} ms, "

@@ -17,8 +17,6 @@ FUNCTIONS = names(
     """abs sgn sqrt exp ln log log10 sin cos tan asin acos atan sinh cosh tanh asinh acosh atanh floor ceil nint
     u u2 uramp ddt min max pow pwr ternary_fcn eq0 ne0 gt0 lt0 ge0 le0 pwl"""
 )
-# A table is written as a piecewise linear function.
-ALSO_CALLED = {"table": "pwl"}
 VARIABLES = frozenset({"temper", "hertz", "time"})
 
 
@@ -47,8 +45,12 @@ def written(formula: Formula, nodes: Sequence[str], elements: Mapping[str, str])
                 return f"({write(condition)} ? {write(yes)} : {write(no)})"
             case Apply(function=sign, arguments=(left, right)) if sign in OPERATORS:
                 return f"({write(left)} {sign} {write(right)})"
-            case Apply(function=function, arguments=arguments) if ALSO_CALLED.get(function, function) in FUNCTIONS:
-                return f"{ALSO_CALLED.get(function, function)}({','.join(map(write, arguments))})"
+            case Apply(function="table", arguments=(x, first, *rest)) if len(rest) > 1:
+                # beyond its ends a table stays, and pwl goes on
+                held = Apply("max", (Apply("min", (x, rest[-2])), first))
+                return write(Apply("pwl", (held, first, *rest)))
+            case Apply(function=function, arguments=arguments) if function in FUNCTIONS:
+                return f"{function}({','.join(map(write, arguments))})"
         raise EngineError(f"a formula holds {_what(part)}, which has no place in the engine's deck")
 
     return write(formula)

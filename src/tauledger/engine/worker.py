@@ -171,7 +171,7 @@ def _ac(spice: Spice, request: Message) -> list[Message]:
 
 
 def readings(spice: Spice, asked: Iterable[tuple[str, list[str]]]) -> list[list[float | None]]:
-    """Read @device[…] for (device, names) in a plot of its own each: in one that grows, 10,000 readings take seconds."""
+    """Read @device[…] of (device, names), each in a plot of its own: in one that grows, 10,000 take seconds."""
     found: list[list[float | None]] = []
     for device, names in asked:
         spice.command("setplot new")
