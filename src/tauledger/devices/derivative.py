@@ -1,7 +1,8 @@
 """A formula at the operating point: its value and its derivative by every voltage and current in it, exactly.
 
 Both are carried through the formula together, as ngspice understands its functions: x^y and pow(x, y) are |x|^y,
-pwr(x, y) keeps the sign of x, log is natural, a comparison is 1 or 0 and flat, pwl goes on beyond its ends as at them.
+pwr(x, y) keeps the sign of x, log is natural, a comparison is 1 or 0 and flat, pwl goes on beyond its ends as at them
+and a table stays.
 
 Source: Griewank and Walther, "Evaluating Derivatives", 2nd ed., 2008, chapter 3 (forward mode).
 """
@@ -76,7 +77,7 @@ def _apply(function: str, x: Sequence[Slope]) -> Slope:
         case (("?:" | "ternary_fcn"), 3):
             return x[1] if x[0].value else x[2]
         case (("pwl" | "table"), _):
-            return _piecewise(x[0], [point.value for point in x[1:]])
+            return _piecewise(x[0], [point.value for point in x[1:]], held=function == "table")
         case _, 1:
             rule = ONE[function]
             value, slope = rule(x[0].value)
@@ -122,8 +123,11 @@ def _power(x: Slope, y: Slope, *, signed: bool) -> Slope:
     return _chain(sign * value if signed else value, *terms)
 
 
-def _piecewise(x: Slope, numbers: Sequence[float]) -> Slope:
+def _piecewise(x: Slope, numbers: Sequence[float], *, held: bool) -> Slope:
     points = list(zip(numbers[::2], numbers[1::2], strict=True))
+    for (_, level), beyond in ((points[0], x.value < points[0][0]), (points[-1], x.value > points[-1][0])):
+        if held and beyond:
+            return Slope(level, {})
     for (x0, y0), (x1, y1) in pairwise(points):
         if x.value < x1 or (x1, y1) == points[-1]:
             slope = (y1 - y0) / (x1 - x0)
