@@ -264,7 +264,10 @@ def _stages(review: Review) -> Section:
 
 
 def _devices(review: Review) -> Section:
-    return Section("devices", "Devices", setting.devices(review), ("gm, r_π, r_o, C_π, C_μ, f_T",))
+    symbols = {figure.symbol for device in review.devices for figure in device.figures}
+    terms = (("r_pi", "gm, r_π, r_o, C_π, C_μ, f_T"), ("c_gs", "gm, g_mb, r_o, C_gs, C_gd, f_T"))
+    wanted = tuple(term for symbol, term in terms if symbol in symbols)
+    return Section("devices", "Devices", setting.devices(review), wanted)
 
 
 def _roots(review: Review) -> Section:

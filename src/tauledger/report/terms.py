@@ -42,6 +42,10 @@ TERMS = {
         "transconductance, input and output resistance, base-emitter and base-collector capacitance, and the "
         "frequency where the current gain is one."
     ),
+    "gm, g_mb, r_o, C_gs, C_gd, f_T": (
+        "transconductance from gate and from body, output resistance, gate-source and gate-drain capacitance, and the "
+        "frequency where the current gain is one."
+    ),
     "Agreement": (
         "the largest relative difference between the response of the rebuilt network and the sweep of ngspice."
     ),

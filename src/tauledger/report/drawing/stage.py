@@ -32,6 +32,7 @@ COLUMN, MARGIN = 136.0, 22.0
 MOST_CAPACITORS = 3
 SMALL = 0.03
 MOST_STAGES = 24
+FAITHFUL = 0.1
 
 
 class Element(Struct, frozen=True):
@@ -43,11 +44,19 @@ class Element(Struct, frozen=True):
 
 
 def drawable(review: Review) -> tuple[Stage, ...]:
-    """Give the chain of nodes that can be drawn, at most 24; empty for other networks, such as those of two halves."""
+    """Give the chain of nodes that can be drawn, at most 24; empty for other networks: of two halves, or
+    with a stage whose gain by hand is not the exact one within 10 %."""
     rows = {node.name: node for node in review.nodes}
     if any(stage.image or stage.gain_hand is None or stage.node not in rows for stage in review.stages):
         return ()
     if any(not rows[stage.node].resistance_hand_ohm for stage in review.stages):
+        return ()
+    # Where signal also takes another way, by feedback or past the stage, one source per stage is not the circuit.
+    if any(
+        abs(stage.gain_hand - stage.gain_exact) > FAITHFUL * abs(stage.gain_exact)
+        for stage in review.stages
+        if stage.gain_hand is not None and stage.gain_exact is not None
+    ):
         return ()
     return review.stages[:MOST_STAGES]
 
@@ -142,6 +151,10 @@ def _shunts(pieces: list[str], x: float, node: NodeRow, elements: list[Element])
     return x
 
 
+def _factor(factor: float) -> str:
+    return f"{factor:.3g}" if abs(factor) < 1000.0 else f"{factor:.0f}"
+
+
 def _last(start: float, elements: list[Element]) -> float:
     """Give where the last of the elements at a node stands."""
     return start + 22.0 + COLUMN * (len(elements) - 1)
@@ -159,7 +172,7 @@ def _elements(node: NodeRow, review: Review) -> list[Element]:
     for term in shown:
         counts = number(term.farad * term.factor, "F", 3)
         plain = abs(term.factor - 1.0) < 5e-4
-        words = (counts,) if plain else (f"{number(term.farad, 'F', 3)} × {term.factor:.3g}", f"= {counts}")
+        words = (counts,) if plain else (f"{number(term.farad, 'F', 3)} × {_factor(term.factor)}", f"= {counts}")
         elements.append(Element("capacitor", (titles.get(term.part, term.part), *words), term.part))
     rest = ordered[len(shown) :]
     if rest:

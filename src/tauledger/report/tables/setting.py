@@ -9,6 +9,9 @@ from tauledger.record import DeviceFacts, DriveFacts, OutputFacts, Review
 from tauledger.report.tables.grid import Column, Grid, GridRow
 from tauledger.report.wording import NO_NUMBER, fraction, nominal, number, part_unit, symbol
 
+# More columns than these are wider than a page.
+FIGURES_A_TABLE = 7
+
 
 def drive_and_load(review: Review) -> Grid:
     """Give the driven sources, the output with its load, and the conditions."""
@@ -72,12 +75,22 @@ def devices(review: Review) -> tuple[Grid, ...]:
         groups.setdefault(tuple(figure.symbol for figure in device.figures), []).append(device)
     grids = []
     for symbols, members in groups.items():
-        heads = (Column("Device", "l"), Column("kind", "l"), Column("region", "l"), *map(Column, map(symbol, symbols)))
-        rows = tuple(
-            GridRow((device.name, device.kind, device.region, *(number(f.value, f.unit, 3) for f in device.figures)))
-            for device in members
-        )
-        grids.append(Grid("Operating points and small-signal parameters", heads, rows))
+        for start in range(0, max(len(symbols), 1), FIGURES_A_TABLE):
+            part = slice(start, start + FIGURES_A_TABLE)
+            shown = map(Column, map(symbol, symbols[part]))
+            heads = (Column("Device", "l"), Column("kind", "l"), Column("region", "l"), *shown)
+            rows = tuple(
+                GridRow(
+                    (
+                        device.name,
+                        device.kind,
+                        device.region,
+                        *(number(figure.value, figure.unit, 3) for figure in device.figures[part]),
+                    )
+                )
+                for device in members
+            )
+            grids.append(Grid("Operating points and small-signal parameters", heads, rows))
     return tuple(grids)
 
 
