@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping, Sequence
+
 import numpy as np
 
 from tauledger.circuit import Circuit
@@ -44,3 +46,19 @@ def reads_past(circuit: Circuit, engine: Engine) -> bool:
     """Whether the engine knows not every parameter of a circuit."""
     said = engine_says(circuit, engine)
     return "unrecognized parameter" in said or "unknown parameter" in said
+
+
+def worst(families: Mapping[str, Sequence[Circuit]], engine: Engine, *, whole: bool) -> list[tuple[str, int, float]]:
+    """Family, number of circuits and largest disagreement up to 1 GHz; without `whole` the first circuit of each."""
+    rows = []
+    for family, circuits in families.items():
+        kept = circuits if whole else circuits[:1]
+        rows.append((family, len(kept), max(disagreement(rebuilt(c, engine)[0], engine, IN_BAND) for c in kept)))
+    return rows
+
+
+def write_table(rows: Sequence[tuple[str, int, float]]) -> None:
+    """Print the rows as DEVELOPERS.md keeps them."""
+    print()
+    for family, count, error in rows:
+        print(f"| {family} | {count} | {error:.0e} |")

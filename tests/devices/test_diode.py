@@ -5,7 +5,8 @@ from __future__ import annotations
 import pytest
 from msgspec.structs import replace
 
-from agreement import FAR_OUT, IN_BAND, disagreement, reads_past, rebuilt
+from agreement import FAR_OUT, IN_BAND, disagreement, reads_past, rebuilt, write_table
+from agreement import worst as worst_of
 from circuits import board, changed
 from tauledger.circuit import Circuit, Model
 from tauledger.devices.diode import DIODE, region_of, without_m
@@ -133,3 +134,25 @@ def test_the_engine_knows_every_parameter(engine: Engine) -> None:
     assert [card for card in cards if reads_past(stage(card), engine)] == []
     extras = [f"{name}=1" for name in sorted(DIODE.instance_parameters - {"off", "m"})]
     assert [extra for extra in extras if reads_past(stage(extra=extra), engine)] == []
+
+
+FAMILIES = {
+    "diode": [
+        stage(changed(D1, **more), volt, extra, celsius)
+        for volt in BIAS.values()
+        for more, extra, celsius in VARIANTS.values()
+        if "w=" not in extra
+    ]
+}
+
+
+def test_worst_agreement_is_what_the_developers_page_keeps(
+    engine: Engine, pytestconfig: pytest.Config, capsys: pytest.CaptureFixture[str]
+) -> None:
+    """With --write-tables the rows of the table are printed; without, one circuit of a family is enough."""
+    whole = bool(pytestconfig.getoption("--write-tables"))
+    rows = worst_of(FAMILIES, engine, whole=whole)
+    if whole:
+        with capsys.disabled():
+            write_table(rows)
+    assert max(error for _, _, error in rows) < 1e-9

@@ -8,7 +8,8 @@ from itertools import product
 import pytest
 from msgspec.structs import replace
 
-from agreement import FAR_OUT, IN_BAND, disagreement, reads_past, rebuilt
+from agreement import FAR_OUT, IN_BAND, disagreement, reads_past, rebuilt, write_table
+from agreement import worst as worst_of
 from circuits import board
 from tauledger.circuit import Circuit, Element, Model
 from tauledger.devices.bsim import BSIM4, _overlap
@@ -375,3 +376,43 @@ def test_the_engine_knows_every_parameter(card: Model, stage: Callable[..., Circ
     assert [extra for extra in extras if reads_past(stage(card, extra=extra), engine)] == []
     values = {name: dict(card.parameters).get(name, 1.0) for name in family.model_parameters - family.flags - {"level"}}
     assert not reads_past(stage(replace(card, parameters=tuple(values.items()))), engine)
+
+
+def _every(level: int) -> list[Circuit]:
+    """One level in every region, both polarities, with and without series resistance, m, -40, 27 and 125 °C."""
+    conditions = [({}, "", 27.0), ({"rsh": 40.0}, "nrd=3 nrs=2 m=3", -40.0), ({"rsh": 40.0}, "nrd=1 nrs=1", 125.0)]
+    return [
+        mos_stage(of_level(kind, level, **more), *MOS_BIAS[bias], extra, celsius)
+        for kind, bias, (more, extra, celsius) in product(("nmos", "pmos"), MOS_BIAS, conditions)
+    ]
+
+
+def _every_jfet(level: int) -> list[Circuit]:
+    conditions = [({}, "", 27.0), ({"rd": 40.0, "rs": 25.0}, "area=2 m=3", -40.0), ({"rs": 9.0}, "area=0.5", 125.0)]
+    return [
+        jfet_stage(model(kind, level, **{**JFET, **more}), *JFET_BIAS[bias], extra, celsius)
+        for kind, bias, (more, extra, celsius) in product(("njf", "pjf"), JFET_BIAS, conditions)
+    ]
+
+
+FAMILIES = {
+    **{f"MOS level {level}": _every(level) for level in (1, 2, 3, 9)},
+    **{"BSIM3v3 (8)": _every(8), "BSIM4 (54)": _every(54)},
+    **{f"JFET level {level}": _every_jfet(level) for level in (1, 2)},
+    "VDMOS, body diode off": [
+        power_stage(model("vdmos", 1, **{**POWER, **({"pchan": 1.0, "vto": -2.0} if p else {})}), *bias, "m=2", celsius)
+        for p, bias, celsius in product((False, True), POWER_BIAS.values(), (-40.0, 27.0))
+    ],
+}
+
+
+def test_worst_agreement_is_what_the_developers_page_keeps(
+    engine: Engine, pytestconfig: pytest.Config, capsys: pytest.CaptureFixture[str]
+) -> None:
+    """With --write-tables the rows of the table are printed; without, one circuit of a family is enough."""
+    whole = bool(pytestconfig.getoption("--write-tables"))
+    rows = worst_of(FAMILIES, engine, whole=whole)
+    if whole:
+        with capsys.disabled():
+            write_table(rows)
+    assert max(error for _, _, error in rows) < 1e-9

@@ -8,7 +8,8 @@ import numpy as np
 import pytest
 from msgspec.structs import replace
 
-from agreement import reads_past
+from agreement import reads_past, write_table
+from agreement import worst as worst_of
 from circuits import NPN, PNP, board, changed
 from tauledger.circuit import Circuit, Model
 from tauledger.devices.catalogue import linearise, observations
@@ -253,3 +254,27 @@ def test_a_name_that_the_engine_does_not_know_is_told(engine: Engine) -> None:
     strange = replace(GUMMEL_POON, model_parameters=PARAMETERS | {"ksub"})
     with mock.patch("tauledger.engine.deck.FAMILIES", (strange,)):
         assert reads_past(stage(changed(NPN, ksub=1.0)), engine)
+
+
+FAMILIES = {
+    "Gummel-Poon": [
+        *(stage(base, *bias, substrate="s") for base in (NPN, PNP) for bias in BIAS.values()),
+        *(
+            stage(changed(base, **parameters), **conditions)  # type: ignore[arg-type]
+            for base in (NPN, PNP)
+            for parameters, conditions in VARIANTS.values()
+        ),
+    ]
+}
+
+
+def test_worst_agreement_is_what_the_developers_page_keeps(
+    engine: Engine, pytestconfig: pytest.Config, capsys: pytest.CaptureFixture[str]
+) -> None:
+    """With --write-tables the rows of the table are printed; without, one circuit of a family is enough."""
+    whole = bool(pytestconfig.getoption("--write-tables"))
+    rows = worst_of(FAMILIES, engine, whole=whole)
+    if whole:
+        with capsys.disabled():
+            write_table(rows)
+    assert max(error for _, _, error in rows) < 1e-9

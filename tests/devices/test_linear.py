@@ -5,6 +5,8 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
+from agreement import worst as worst_of
+from agreement import write_table
 from circuits import board, changed
 from tauledger.circuit import Circuit, Model, Port
 from tauledger.devices.catalogue import linearise, observations
@@ -124,25 +126,35 @@ def disagreement(circuit: Circuit, engine: Engine) -> float:
     return float(np.max(np.abs(response(network, sweep.frequency_hz) / sweep.response - 1.0)))
 
 
+def passive_stage(letter: str, card: str) -> Circuit:
+    other = "CX out 0 1n" if letter == "R" else "RX out 0 1k"
+    cards = ("VIN in 0 0", other, f"{letter}1 in out {card}")
+    return board(*cards, models=PASSIVE_MODELS, drive={"VIN": 1.0}, temperature_c=50.0)
+
+
+def controlled_stage(name: str) -> Circuit:
+    cards = ("VIN in 0 1.5", "RS in a 1k", "CA a 0 1n", *CONTROLLED[name], "RL x out 50", "CL out 0 10p")
+    return board(*cards, drive={"VIN": 1.0})
+
+
+def coupled_stage(name: str) -> Circuit:
+    cards = ("VIN in 0 0", "RS in a 50", *COUPLED[name], "RL x out 50", "RX out 0 300", "CL out 0 10p")
+    return board(*cards, drive={"VIN": 1.0}, temperature_c=40.0)
+
+
 @pytest.mark.parametrize(("letter", "card"), PASSIVES)
 def test_passives_with_models_and_temperature_agree(letter: str, card: str, engine: Engine) -> None:
-    names = {"R": ("VIN in 0 0", "CX out 0 1n"), "C": ("VIN in 0 0", "RX out 0 1k"), "L": ("VIN in 0 0", "RX out 0 1k")}
-    circuit = board(
-        *names[letter], f"{letter}1 in out {card}", models=PASSIVE_MODELS, drive={"VIN": 1.0}, temperature_c=50.0
-    )
-    assert disagreement(circuit, engine) < 1e-11
+    assert disagreement(passive_stage(letter, card), engine) < 1e-11
 
 
 @pytest.mark.parametrize("name", CONTROLLED)
 def test_controlled_sources_agree(name: str, engine: Engine) -> None:
-    cards = ("VIN in 0 1.5", "RS in a 1k", "CA a 0 1n", *CONTROLLED[name], "RL x out 50", "CL out 0 10p")
-    assert disagreement(board(*cards, drive={"VIN": 1.0}), engine) < 1e-11
+    assert disagreement(controlled_stage(name), engine) < 1e-11
 
 
 @pytest.mark.parametrize("name", COUPLED)
 def test_coupled_inductors_agree(name: str, engine: Engine) -> None:
-    cards = ("VIN in 0 0", "RS in a 50", *COUPLED[name], "RL x out 50", "RX out 0 300", "CL out 0 10p")
-    assert disagreement(board(*cards, drive={"VIN": 1.0}, temperature_c=40.0), engine) < 1e-10
+    assert disagreement(coupled_stage(name), engine) < 1e-10
 
 
 def test_current_through_controlled_sources_is_an_output(engine: Engine) -> None:
@@ -209,3 +221,22 @@ def test_a_controlled_source_whose_control_shares_a_node_with_its_output_is_a_ce
 
 def test_a_conductance_is_no_cell() -> None:
     assert cell_of(conductance("R1", "a", "b", 1.0)) is None
+
+
+FAMILIES = {
+    "R, C, L with model, coefficients, m, ac=": [passive_stage(letter, card) for letter, card in PASSIVES],
+    "E, F, G, H, POLY": [controlled_stage(name) for name in CONTROLLED],
+    "coupled inductors": [coupled_stage(name) for name in COUPLED],
+}
+
+
+def test_worst_agreement_is_what_the_developers_page_keeps(
+    engine: Engine, pytestconfig: pytest.Config, capsys: pytest.CaptureFixture[str]
+) -> None:
+    """With --write-tables the rows of the table are printed; without, one circuit of a family is enough."""
+    whole = bool(pytestconfig.getoption("--write-tables"))
+    rows = worst_of(FAMILIES, engine, whole=whole)
+    if whole:
+        with capsys.disabled():
+            write_table(rows)
+    assert max(error for _, _, error in rows) < 1e-9
