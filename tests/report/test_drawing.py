@@ -114,3 +114,17 @@ def test_networks_that_are_no_chain_have_no_drawing() -> None:
 def test_a_long_chain_is_drawn_as_far_as_its_caption_says() -> None:
     first, second = ECHO_PREAMP.stages
     assert len(drawn_stages(replace(ECHO_PREAMP, stages=(first, *(40 * (second,)))))) == MOST_STAGES
+
+
+def test_passive_nodes_before_the_first_stage_are_taken_together() -> None:
+    first, second = ECHO_PREAMP.stages
+    pad = replace(first, owner="", gain_hand=0.5, gain_exact=0.5)
+    pads = replace(ECHO_PREAMP, stages=(replace(pad, node="e"), pad, second))
+    told = [words for *_, words in texts(drawn_stages(pads)[0][1])]
+    assert told[:2] == ["+", "0.25 ·"]
+    assert len(drawn_stages(pads)) == 2
+
+
+def test_a_passive_node_after_a_stage_makes_a_table_of_it() -> None:
+    first, second = ECHO_PREAMP.stages
+    assert drawn_stages(replace(ECHO_PREAMP, stages=(first, second, replace(second, owner="")))) == ()

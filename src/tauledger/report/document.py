@@ -11,7 +11,7 @@ from typing import Literal
 from msgspec import Struct
 
 from tauledger.record import CauseFacts, Review
-from tauledger.report.drawing.stage import drawable
+from tauledger.report.drawing.stage import MOST_STAGES, drawable
 from tauledger.report.sentences import (
     Answer,
     KeyFigure,
@@ -163,8 +163,8 @@ def _budget(review: Review) -> Section:
 def _time(review: Review) -> Section:
     picture = Picture(
         "time",
-        "R·C of every capacitance that matters, by hand above exact, under the node where it counts most. The bars add "
-        "up to the sum of time constants.",
+        "R·C of every capacitance that matters, by hand above exact, under the node where it counts most. With "
+        "those too small to show the bars add up to the sum of time constants.",
     )
     return Section("time", "Where the time goes", (picture,) if upper.counting_nodes(review) else ())
 
@@ -255,7 +255,7 @@ def _stages(review: Review) -> Section:
             "capacitances with their Miller part, R_Th the resistance at the input. Gm·v, with Gm = gain over R, gives "
             "the gain in the table."
         )
-        if len(drawn) < len(review.stages):
+        if len(drawn) == MOST_STAGES < len(review.stages):
             caption += f" Drawn: the first {len(drawn)} nodes of {len(review.stages)}."
         blocks.append(Picture("stages", caption))
     elif upper.counting_nodes(review):

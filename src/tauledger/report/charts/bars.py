@@ -45,7 +45,7 @@ def time_groups(review: Review) -> tuple[TimeGroup, ...]:
     group delay. Those below 0.4 % of the sum are left out.
     """
     titles = part_titles(review.parts)
-    rows = {part.name: part for part in review.parts if part.klass == "open" and part.in_path}
+    rows = {part.name: part for part in review.parts if part.klass in ("open", "gain") and part.in_path}
     least = WORTH_A_BAR * abs(whole_s(review))
     home: dict[str, tuple[float, str]] = {}
     hand: dict[str, float] = {}
@@ -124,10 +124,10 @@ def share_chart(review: Review) -> str:
         axes = figure.add_subplot()
         values = [100.0 * (part.share.f_high or 0.0) for part in parts]
         for y, (part, value) in enumerate(zip(parts, values, strict=True)):
-            _share_bar(axes, y, part, value, max(map(abs, values)))
+            _share_bar(axes, y, part, value)
         low, high = min(0.0, *values, 0.0), max(0.0, *values, 0.0)
         room = 0.16 * (high - low)
-        axes.set_xlim(low - (room if low < 0.0 else 0.0), high + room)
+        axes.set_xlim(low, max(high + room, 0.25 * (high - low)))
         axes.set_ylim(len(parts) - 0.4, -0.6)
         axes.set_yticks(range(len(parts)), [titles[part.name] for part in parts])
         axes.axvline(0.0, color=light("ink"), linewidth=1.0)
@@ -154,18 +154,15 @@ def _pair(axes: Axes, y: float, bar: TimeBar, scale: float) -> None:
     axes.annotate(label, (max(bar.hand_s * scale, exact, 0.0), y), (5, 0), textcoords="offset points", va="center")
 
 
-def _share_bar(axes: Axes, y: int, part: PartRow, value: float, largest: float) -> None:
+def _share_bar(axes: Axes, y: int, part: PartRow, value: float) -> None:
     if value >= 0.0:
         drawn = axes.barh(y, value, 0.56, color=light("exact"), linewidth=0.0)
     else:
         drawn = axes.barh(y, value, 0.56, facecolor="none", edgecolor=light("faster"), hatch="\\\\\\\\", linewidth=1.1)
     drawn[0].set_gid(marked(part.name))
-    side = "left" if value >= 0.0 else "right"
     told = fraction(part.share.f_high) if value >= 0.0 else f"speeds up {fraction(abs(value) / 100.0)}"
-    if value < 0.0 and abs(value) < 0.3 * largest:
-        side, value = "left", 0.0
-    away = 5 if side == "left" else -5
-    axes.annotate(told, (value, y), (away, 0), textcoords="offset points", va="center", ha=side)
+    # Left of its bar a text would run into the names.
+    axes.annotate(told, (max(value, 0.0), y), (5, 0), textcoords="offset points", va="center", ha="left")
 
 
 def _legend(axes: Axes) -> None:

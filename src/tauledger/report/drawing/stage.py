@@ -6,9 +6,11 @@ mid-band gain; each capacitance stands there with the part that counts at this n
 
 from __future__ import annotations
 
+import math
 from itertools import pairwise
 
 from msgspec import Struct
+from msgspec.structs import replace
 
 from tauledger.record import NodeRow, Review, Stage
 from tauledger.report.charts.style import escape
@@ -44,21 +46,30 @@ class Element(Struct, frozen=True):
 
 
 def drawable(review: Review) -> tuple[Stage, ...]:
-    """Give the chain of nodes that can be drawn, at most 24; empty for other networks: of two halves, or
-    with a stage whose gain by hand is not the exact one within 10 %."""
+    """Give the chain of nodes that can be drawn, at most 24 and the first with its gain from the source.
+
+    Passive nodes before the first stage are taken together. Empty for other networks: of two halves, with a passive
+    node further on, or with a stage whose gain by hand is not the exact one within 10 %.
+    """
     rows = {node.name: node for node in review.nodes}
-    if any(stage.image or stage.gain_hand is None or stage.node not in rows for stage in review.stages):
+    leading = 0
+    while leading < len(review.stages) and not review.stages[leading].owner:
+        leading += 1
+    before, chain = review.stages[: max(leading - 1, 0)], review.stages[max(leading - 1, 0) :]
+    if not all(_as_drawn(stage, rows) for stage in review.stages) or not all(stage.owner for stage in chain[1:]):
         return ()
-    if any(not rows[stage.node].resistance_hand_ohm for stage in review.stages):
+    if not chain:
         return ()
-    # Where signal also takes another way, by feedback or past the stage, one source per stage is not the circuit.
-    if any(
-        abs(stage.gain_hand - stage.gain_exact) > FAITHFUL * abs(stage.gain_exact)
-        for stage in review.stages
-        if stage.gain_hand is not None and stage.gain_exact is not None
-    ):
-        return ()
-    return review.stages[:MOST_STAGES]
+    gain = math.prod(stage.gain_hand or 0.0 for stage in (*before, chain[0]))
+    return (replace(chain[0], gain_hand=gain), *chain[1:MOST_STAGES])
+
+
+def _as_drawn(stage: Stage, rows: dict[str, NodeRow]) -> bool:
+    """Whether one resistance and one source make the stage: not where signal takes another way too, as by feedback."""
+    if stage.image or stage.node not in rows or stage.gain_hand is None or stage.gain_exact is None:
+        return False
+    faithful = abs(stage.gain_hand - stage.gain_exact) <= FAITHFUL * abs(stage.gain_exact)
+    return faithful and bool(rows[stage.node].resistance_hand_ohm)
 
 
 def drawn_stages(review: Review) -> tuple[tuple[str, str], ...]:
