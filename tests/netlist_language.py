@@ -185,4 +185,14 @@ R1 a y 2k
 .end
 R13 f 0 3k
 """,
+    "a resistor of nothing and noise sources": """nothing
+V1 in 0 DC 1 TRNOISE(1m 1n 0 0) AC 1
+V2 c 0 trnoise(20n 0.5n 0 0)
+V3 d 0 DC 2 trrandom(2 10m 0 1 2)
+R1 in a 0
+R2 a 0 1k
+R3 c d 1k
+R4 a b 0 m=2
+R5 b 0 1
+""",
 }

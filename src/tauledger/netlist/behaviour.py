@@ -14,6 +14,8 @@ from functools import cache
 from types import SimpleNamespace
 from typing import TYPE_CHECKING, Any
 
+from msgspec import Struct
+
 from tauledger import circuit
 from tauledger.circuit import fold
 from tauledger.errors import NetlistError
@@ -37,6 +39,10 @@ u u2 uramp ddt eq0 ne0 gt0 lt0 ge0 le0"""
 # Number of arguments; pwl takes a variable and pairs.
 FUNCTIONS: dict[str, int] = dict.fromkeys(_ONE.split(), 1)
 FUNCTIONS |= {"min": 2, "max": 2, "pow": 2, "pwr": 2, "ternary_fcn": 3, "pwl": -1}
+
+# What comes after this room walks a formula level by level and part by part.
+MOST_DEEP = 100
+MOST_PARTS = 5000
 
 Fault = Callable[[Tree, str, str], NetlistError]
 
@@ -136,6 +142,28 @@ def formula_of(
         return found
 
     return convert(expression.tree, {}, _fault_at(site, expression))
+
+
+class Extent(Struct, frozen=True):
+    """How large a formula is when it is written out: operators and functions, and how many stand in one another."""
+
+    size: int
+    depth: int
+
+
+def extent(formula: circuit.Formula) -> Extent:
+    """Measure a formula; a part that several others share is measured once."""
+    known: dict[int, Extent] = {}
+
+    def measured(part: circuit.Formula) -> Extent:
+        if not isinstance(part, circuit.Apply):
+            return Extent(1, 0)
+        if id(part) not in known:
+            inside = [measured(argument) for argument in part.arguments]
+            known[id(part)] = Extent(1 + sum(e.size for e in inside), 1 + max((e.depth for e in inside), default=0))
+        return known[id(part)]
+
+    return measured(formula)
 
 
 def _fault_at(site: Site, expression: Behaviour) -> Fault:

@@ -37,7 +37,7 @@ _UNCLOSED = {
 
 # The keywords behind which a behavioural expression stands, in braces, quotes or bare, by letter.
 _BEHAVIOURAL = {"B": "v|i", "E": "vol|value", "G": "cur|value", "C": "q"}
-_PIECE = re.compile(r"""'[^']*'|"[^"]*"|\{[^{}]*\}|[()]|(?<![\w.])([A-Za-z]+\w*)\s*(?:=(?!=)\s*|(?=[{'"]))""")
+_PIECE = re.compile(r"""'[^']*'|"[^"]*"|\{[^{}]*\}|[()]|(?<![\w.])([A-Za-z]\w*+)\s*+(?:=(?!=)\s*|(?=[{'"]))""")
 _BEHIND = re.compile(r"""'[^']*'|"[^"]*"|\{[^{}]*\}|[()]|\s(?:tc1|tc2|m|temp|dtemp|ic)\s*=(?!=)""", re.IGNORECASE)
 
 

@@ -84,6 +84,7 @@ def elaborated(
         caller=None,
         lexical=None,
         models={},
+        seen=[],
     )
     flatten(netlist, draft, top, faults)
     faults.extend(draft.refusals if purpose == "review" else [])

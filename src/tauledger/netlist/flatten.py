@@ -10,7 +10,7 @@ from tauledger.devices.catalogue import choose, families_of
 from tauledger.devices.family import Refusal, never_refused
 from tauledger.errors import Diagnostic, InputError, NetlistError
 from tauledger.netlist.assignments import ALL
-from tauledger.netlist.behaviour import formula_of
+from tauledger.netlist.behaviour import MOST_DEEP, MOST_PARTS, extent, formula_of
 from tauledger.netlist.bins import bin_bases
 from tauledger.netlist.bulk import add_run
 from tauledger.netlist.conditions import counts, define_all
@@ -42,6 +42,8 @@ WITHOUT_M = frozenset("VEHBKTSWOUYP")
 # What `.options scale` multiplies.
 LENGTHS = ("l", "w", "pd", "ps", "sa", "sb", "sd")
 AREAS = ("ad", "as")
+# What ngspice takes for a resistor of 0 Ω.
+LEAST_OHM = 1e-3
 READ_ONLY = "`tauledger netlist` shows what was read"
 
 
@@ -125,7 +127,7 @@ def _element(
     elif letter == "T":
         part = line(site, card, around.scope)
     else:
-        seen = dict(reversed(list(visible_models(netlist, around))))
+        seen = visible_models(netlist, around)
         bases = bin_bases(seen) if letter == "M" else frozenset()
         part = _modelled(site, card, letter, frozenset(seen) | bases, around.scope)
         part = _scaled(draft, part, letter)
@@ -133,7 +135,7 @@ def _element(
             part = replace(part, model=picked_bin(netlist, draft, seen, part, part.model, letter, site))
     part = _multiplied(around, part, letter, name, site)
     if letter in PASSIVES and part.model is None and [key for key, _ in part.parameters] == ["value"]:
-        _plain(netlist, draft, around, part, letter, name, number)
+        _plain(netlist, draft, around, part, letter, name, number, site)
         return
     model = None if part.model is None else model_for(netlist, draft, seen[fold(part.model.text)], part.model, letter)
     element = Element(
@@ -174,6 +176,9 @@ def _modelled(site: Site, card: Fields, letter: str, models: frozenset[str], sco
     """Read a card whose last place is a model: a passive may have one, a device must."""
     if letter in PASSIVES:
         return passive(site, card, letter, models, scope)
+    if letter == "U" and len(card.places) > MODELLED["U"].least + 1:
+        message = f"{card.name.text}: digital parts are not supported"
+        raise site.fault(card.name, message, "U is read as a distributed RC line: U1 near far capacitances model")
     control = card.places[2] if letter == "W" and len(card.places) > 2 else None
     if control is not None:
         if not isinstance(control, Word):
@@ -214,10 +219,22 @@ def _multiplied(around: Surroundings, part: ElementCard, letter: str, name: str,
 
 
 def _plain(
-    netlist: Netlist, draft: Draft, around: Surroundings, part: ElementCard, letter: str, name: str, number: int
+    netlist: Netlist,
+    draft: Draft,
+    around: Surroundings,
+    part: ElementCard,
+    letter: str,
+    name: str,
+    number: int,
+    site: Site,
 ) -> None:
-    value = _changed(draft, name, part.parameters[0][1])
-    if problem := impossible(letter, value):
+    """Add an R, C or L of which only the value counts."""
+    own = part.parameters[0][1]
+    value = _changed(draft, name, own)
+    if letter == "R" and value == own == 0.0:
+        value = LEAST_OHM
+        around.scope.notes.append(ReadingNote(site.where, f"{name} has 0 Ω: 1 mΩ is put there, as ngspice does"))
+    elif problem := impossible(letter, value):
         raise InputError(f"{name}: {problem}")
     a, b = (node_of(netlist, draft, around, node) for node in part.nodes)
     scaled = value * part.m if letter == "C" else value / part.m
@@ -244,13 +261,21 @@ def _formula(
         return None
     at = part.behaviour.at
 
-    found = formula_of(
-        site,
-        part.behaviour,
-        scope=around.scope,
-        node=lambda text: node_of(netlist, draft, around, Word(text, at)),
-        source=lambda text: around.prefix + text,
-    )
+    limits = f"at most {MOST_DEEP} levels and {MOST_PARTS} operators when its functions are put in"
+    too_large = site.fault(part.behaviour, "the formula is too large", f"split it into sources: {limits}")
+    try:
+        found = formula_of(
+            site,
+            part.behaviour,
+            scope=around.scope,
+            node=lambda text: node_of(netlist, draft, around, Word(text, at)),
+            source=lambda text: around.prefix + text,
+        )
+        whole = extent(found)
+    except RecursionError as error:
+        raise too_large from error
+    if whole.depth > MOST_DEEP or whole.size > MOST_PARTS:
+        raise too_large
     if part.table:
         return circuit.Apply("table", (found, *map(circuit.Number, part.table)))
     return found
@@ -348,6 +373,7 @@ def _instance(
         caller=around,
         lexical=home,
         models={},
+        seen=[],
     )
     before = len(faults)
     work_out_all(scope, faults)

@@ -108,4 +108,4 @@ MODEL_TYPES = frozenset(kind for entry in MODELLED.values() for kind in entry.mo
     kind for kinds in PASSIVE_MODELS.values() for kind in kinds
 )
 
-TIME_FUNCTIONS = frozenset(["pulse", "sin", "sine", "exp", "pwl", "sffm", "am"])
+TIME_FUNCTIONS = frozenset(["pulse", "sin", "sine", "exp", "pwl", "sffm", "am", "trnoise", "trrandom"])

@@ -20,8 +20,18 @@ from tauledger.netlist.netlist import Netlist
 from tauledger.netlist.surroundings import Surroundings
 
 
-def visible_models(netlist: Netlist, around: Surroundings) -> Iterator[tuple[str, tuple[Surroundings, int]]]:
-    """Run through the models that can be seen, nearest first; of two in one place the first counts."""
+def visible_models(netlist: Netlist, around: Surroundings) -> dict[str, tuple[Surroundings, int]]:
+    """Give the models that can be seen from an instance, by folded name: where each stands and its card.
+
+    The nearest counts, of two in one place the first. Worked out once for each instance.
+    """
+    if not around.seen:
+        around.seen.append(dict(reversed(list(_all_models(netlist, around)))))
+    return around.seen[0]
+
+
+def _all_models(netlist: Netlist, around: Surroundings) -> Iterator[tuple[str, tuple[Surroundings, int]]]:
+    """Run through the models of an instance and of what is around its definition, nearest first."""
     here: Surroundings | None = around
     while here is not None:
         for number in here.definition.models:
@@ -80,7 +90,7 @@ def _base(netlist: Netlist, draft: Draft, home: Surroundings, number: int, lette
     word = base_name(netlist.items[number])
     if word is None:
         return None
-    seen = dict(reversed(list(visible_models(netlist, home))))
+    seen = visible_models(netlist, home)
     found = seen.get(fold(word.text))
     if found is None or found[1] == number or base_name(netlist.items[found[1]]) is not None:
         problem = "is a kind of another one itself" if found else "does not exist"

@@ -96,9 +96,9 @@ def impossible(letter: str, value: float) -> str:
 
 
 def _checked(site: Site, value: Value, number: float, letter: str) -> float:
-    message = impossible(letter, number)
+    message = "" if number == 0.0 else impossible(letter, number)
     if message:
-        raise site.fault(value, message, "join the two nodes instead, or write 1m" if number == 0.0 else "")
+        raise site.fault(value, message)
     return number
 
 

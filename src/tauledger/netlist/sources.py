@@ -16,7 +16,7 @@ from tauledger.netlist.letters import SOURCES, TIME_FUNCTIONS
 from tauledger.netlist.numbers import read_number
 from tauledger.netlist.scopes import Scope, find, number_of
 
-REFUSED_WORDS = frozenset({"trnoise", "trrandom", "external", "portnum", "z0"})
+REFUSED_WORDS = frozenset({"external", "portnum", "z0"})
 WITH_LIST = TIME_FUNCTIONS | {"dc", "ac", "distof1", "distof2"}
 SHAPE = "V1 n+ n- DC value AC magnitude phase"
 
@@ -77,6 +77,8 @@ def source(site: Site, items: tuple[Item, ...], letter: str, scope: Scope) -> So
         else:
             raise _unexpected(site, item, word, letter)
     magnitude, phase = ac if ac is not None else (None, 0.0)
+    if dc is None and at_start is not None and math.isnan(at_start):
+        raise site.fault(flat[2], "the value at t = 0 is drawn at random", f"write {SHAPE}")
     value = dc if dc is not None else at_start if at_start is not None else 0.0
     return SourceCard((places[0], places[1]), value, magnitude, phase, m)
 
@@ -177,6 +179,8 @@ _START: dict[str, tuple[Callable[[list[float]], float], int]] = {
     "sine": (_sine, 2),
     "pwl": (_piecewise, 2),
     "sffm": (_modulated_frequency, 5),
+    "trnoise": (lambda _numbers: 0.0, 2),
+    "trrandom": (lambda _numbers: math.nan, 2),
     "am": (lambda _numbers: 0.0, 3),
 }
 
