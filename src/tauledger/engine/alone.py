@@ -26,10 +26,17 @@ from tauledger.circuit import (
     fold,
     terminals_of,
 )
+from tauledger.engine.deck import Deck, write_deck
+from tauledger.engine.grid import GRID_TOLERANCE, plan
+from tauledger.engine.protocol import Message
+from tauledger.engine.verdict import judge
 from tauledger.errors import EngineError
 from tauledger.solution import Isolation, Samples
 
 Complex = NDArray[np.complex128]
+
+# Lines of the engine that an error repeats.
+TOLD = 6
 
 
 class Alone(Struct, frozen=True):
@@ -55,11 +62,22 @@ class Bench(Struct, frozen=True):
 
     circuit: Circuit
     instances: tuple[Alone, ...]
+    deck: Deck
+
+    @property
+    def frequency_hz(self) -> NDArray[np.float64]:
+        """What is asked, Hz (n_freq,): the same for all."""
+        return np.array(self.instances[0].isolation.frequency_hz, dtype=float)
+
+    def made(self, name: str) -> str:
+        """Give the name that an element has in the deck."""
+        return self.deck.elements[fold(name)]
 
 
 def bench(circuit: Circuit, isolations: Sequence[Isolation]) -> Bench:
     """Build the circuit of instances with their terminals held and their controlling currents forced.
 
+    isolations: with the same frequencies.
     Raises EngineError where the circuit has no such element, ValueError where voltages or currents do not fit to it.
     """
     nodes = [GROUND]
@@ -117,7 +135,59 @@ def bench(circuit: Circuit, isolations: Sequence[Isolation]) -> Bench:
         tnom_c=circuit.tnom_c,
         options=circuit.options,
     )
-    return Bench(made, tuple(instances))
+    return Bench(made, tuple(instances), write_deck(made))
+
+
+def question(asked: Bench) -> Message:
+    """Give the request to the worker: k-th source of every instance driven at once, one k after the other."""
+    vectors = [name for instance in asked.instances for name in _vectors(asked, instance)]
+    most = max(len(instance.sources) for instance in asked.instances)
+    driven = [[asked.made(i.sources[k]) for i in asked.instances if k < len(i.sources)] for k in range(most)]
+    grids = [(grid.points, grid.start_hz, grid.stop_hz) for grid in plan(asked.frequency_hz)]
+    return {"do": "isolate", "deck": asked.deck.text, "vectors": vectors, "grids": grids, "sources": driven}
+
+
+def answered(asked: Bench, answer: Message) -> list[Samples]:
+    """Give what each instance answered.
+
+    Raises EngineError where the engine has no AC response of them, or one at other frequencies.
+    """
+    frequency = asked.frequency_hz
+    counts = [len(_vectors(asked, instance)) for instance in asked.instances]
+    columns: list[Complex] = []
+    for runs in answer["driven"]:
+        for run in runs:
+            verdict = judge(answer["load"], run["run"], has_result=bool(run["frequency"]), names=asked.deck.says)
+            if verdict.state not in ("sound", "stepped"):
+                names = ", ".join(instance.name for instance in asked.instances)
+                raise EngineError(f"ngspice gave no AC response of {names} alone", engine_says=verdict.says[:TOLD])
+        frequency = np.concatenate([np.array(run["frequency"]).view(complex).real for run in runs])
+        wanted = asked.frequency_hz
+        if len(frequency) != len(wanted) or np.max(np.abs(frequency / wanted - 1.0)) > GRID_TOLERANCE:
+            raise EngineError("ngspice solved other frequencies than those asked for")
+        column = [np.concatenate([_column(run, k) for run in runs]) for k in range(sum(counts))]
+        columns.append(np.array(column, dtype=complex))
+    found: list[Samples] = []
+    first = 0
+    for instance, count in zip(asked.instances, counts, strict=True):
+        own = [column[first : first + count] for column in columns[: len(instance.sources)]]
+        found.append(samples(instance, frequency, own))
+        first += count
+    return found
+
+
+def _vectors(asked: Bench, instance: Alone) -> list[str]:
+    """List the engine's names of what is recorded: currents of the holders, voltages of the inner nodes."""
+    inner = [f"{asked.made(instance.name)}#{suffix}" for suffix in instance.isolation.inner]
+    return [*(f"{asked.made(name)}#branch" for name in instance.holders), *inner]
+
+
+def _column(run: Message, k: int) -> Complex:
+    """Give one vector of an AC run, or NaN where the engine has none of that name."""
+    values = run["vectors"][k]
+    if values is None:
+        return np.full(len(run["frequency"]) // 2, np.nan + 0j)
+    return np.array(values).view(complex)
 
 
 def samples(instance: Alone, frequency_hz: NDArray[np.float64], answers: Sequence[Complex]) -> Samples:

@@ -254,56 +254,11 @@ class Engine:
         return tuple(found[isolation.element] for isolation in isolations)
 
     def _isolate(self, circuit: Circuit, isolations: Sequence[Isolation]) -> list[Samples]:
-        import numpy as np
-
-        from tauledger.circuit import fold
-        from tauledger.engine.alone import bench, samples
-        from tauledger.engine.deck import write_deck
-        from tauledger.engine.grid import GRID_TOLERANCE, plan
-        from tauledger.engine.verdict import judge
+        from tauledger.engine.alone import answered, bench, question
 
         made = bench(circuit, isolations)
-        deck = write_deck(made.circuit)
-        asked = np.array(isolations[0].frequency_hz, dtype=float)
-        vectors: list[str] = []
-        own: list[slice] = []
-        for instance in made.instances:
-            first = len(vectors)
-            vectors += [f"{deck.elements[fold(name)]}#branch" for name in instance.holders]
-            vectors += [f"{deck.elements[fold(instance.name)]}#{suffix}" for suffix in instance.isolation.inner]
-            own.append(slice(first, len(vectors)))
-        most = max(len(instance.sources) for instance in made.instances)
         self._displaced = True
-        answer = self._ask(
-            {
-                "do": "isolate",
-                "deck": deck.text,
-                "vectors": vectors,
-                "grids": [(g.points, g.start_hz, g.stop_hz) for g in plan(asked)],
-                "sources": [
-                    [deck.elements[fold(i.sources[k])] for i in made.instances if k < len(i.sources)]
-                    for k in range(most)
-                ],
-            }
-        )
-        columns: list[NDArray[np.complex128]] = []
-        frequency = asked
-        for runs in answer["driven"]:
-            for run in runs:
-                verdict = judge(answer["load"], run["run"], has_result=bool(run["frequency"]), names=deck.says)
-                if verdict.state not in ("sound", "stepped"):
-                    names = ", ".join(isolation.element for isolation in isolations)
-                    says = verdict.says[:TELL_AT_MOST]
-                    raise EngineError(f"ngspice gave no AC response of {names} alone", engine_says=says)
-            frequency = np.concatenate([np.array(run["frequency"]).view(complex).real for run in runs])
-            if len(frequency) != len(asked) or np.max(np.abs(frequency / asked - 1.0)) > GRID_TOLERANCE:
-                raise EngineError("ngspice solved other frequencies than those asked for")
-            column = [np.concatenate([_column(run, k) for run in runs]) for k in range(len(vectors))]
-            columns.append(np.array(column, dtype=complex))
-        return [
-            samples(instance, frequency, [column[part] for column in columns[: len(instance.sources)]])
-            for instance, part in zip(made.instances, own, strict=True)
-        ]
+        return answered(made, self._ask(question(made)))
 
     def _run(self, grids: Sequence[Grid]) -> Sweep:
         """Run AC grids on the loaded circuit; the sweep holds whatever frequencies the engine laid out."""
@@ -405,16 +360,6 @@ def _output_vectors(circuit: Circuit, deck: Deck) -> list[tuple[str, float]]:
     at = {fold(name): made for name, made in zip(circuit.nodes, deck.nodes, strict=True)}
     ends = ((port.plus, 1.0), (port.minus, -1.0))
     return [(at[fold(node)], sign) for node, sign in ends if node != GROUND]
-
-
-def _column(run: Message, k: int) -> NDArray[np.complex128]:
-    """Give one vector of an AC run, or NaN where the engine has none of that name."""
-    import numpy as np
-
-    values = run["vectors"][k]
-    if values is None:
-        return np.full(len(run["frequency"]) // 2, np.nan + 0j)
-    return np.array(values).view(complex)
 
 
 def _finite(value: float | None) -> bool:

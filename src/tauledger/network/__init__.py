@@ -1,6 +1,7 @@
 """The network room: labelled parts in, exact numbers out; it knows neither netlist nor engine nor device.
 
 assemble.py    parts → G and C, drive b, output e; solve.py  Y x = b and Yᵀ λ = e at many frequencies at once
+admittance.py  Y(s) and dY/ds with delays, and the all-pass that stands for a delay among poles
 reactances.py  every reactive part as a rank-one term of C, which is all that shares, constants and owners need
 spectrum.py    poles and zeros as numbers; poles.py  who owns them, which pairs cancel
 midband.py     the reference; bands.py  short, open or tuned there, and the upper and the lower network
