@@ -78,3 +78,39 @@ def test_an_instance_between_ground_and_ground_has_both_terminals(engine: Engine
     alone = engine.isolate(circuit, Isolation("Q1", (0.6, 0.0), (1e6,)))
     assert alone.terminals == ("b", "0")
     assert alone.admittance[0, 0, 0] == pytest.approx(-alone.admittance[0, 1, 0], rel=1e-2)
+
+
+def test_several_at_once_answer_as_one_by_one(engine: Engine) -> None:
+    """With other numbers of terminals, and models of their own, beside each other."""
+    cards = ("V1 c 0 5", "V2 b 0 0.7", "Q1 c b 0 qn", "Q2 c b 0 s qp", "F1 c 0 V2 40", "RS s 0 1k")
+    circuit = board(*cards, output="c")
+    asked = (
+        Isolation("Q1", (5.0, 0.7, 0.0), (1e3, 1e9), inner=("base",)),
+        Isolation("Q2", (-5.0, -0.7, 0.0, 0.1), (1e3, 1e9)),
+        Isolation("F1", (5.0, 0.0), (1e3, 1e9), currents=(1e-3,)),
+        Isolation("Q1", (5.0, 0.7, 0.0), (1e6,)),
+    )
+    together = engine.isolate_all(circuit, asked[:3])
+    for isolation, found in zip(asked[:3], together, strict=True):
+        alone = engine.isolate(circuit, isolation)
+        assert np.array_equal(alone.admittance, found.admittance)
+        assert np.array_equal(alone.current_gain, found.current_gain)
+        assert alone.inner == found.inner
+    assert np.allclose(together[2].current_gain[:, :, 0], [[40.0, -40.0]] * 2, rtol=1e-12)
+    assert np.allclose(together[2].admittance, 0.0)
+
+
+def test_one_without_an_answer_is_named_and_the_engine_goes_on(engine: Engine) -> None:
+    circuit = board("V1 c 0 5", "Q1 c c 0 qn", "Q2 c c 0 qn", output="c")
+    wrong = Isolation("Q2", (1e3, -1e3), (1e6,), parameters=(("area", 0.0),))
+    with pytest.raises(EngineError, match="Q2"):
+        engine.isolate_all(circuit, (Isolation("Q1", (0.6, 0.0), (1e6,)), wrong))
+    assert engine.isolate(circuit, Isolation("Q1", (0.6, 0.0), (1e6,))).terminals == ("c", "0")
+
+
+def test_each_place_of_a_node_can_be_a_terminal_of_its_own(engine: Engine) -> None:
+    circuit = board("V1 c 0 0.6", "Q1 c c 0 qn", output="c")
+    joined = engine.isolate(circuit, Isolation("Q1", (0.6, 0.0), (1e6,))).admittance[0]
+    apart = engine.isolate(circuit, Isolation("Q1", (0.6, 0.6, 0.0), (1e6,), each_node=True))
+    assert apart.terminals == ("c", "c", "0")
+    assert apart.admittance[0, :2, :2].sum() == pytest.approx(joined[0, 0], rel=1e-9)
