@@ -17,7 +17,6 @@ from tauledger.devices.catalogue import choose, fitting, isolations, linearise
 from tauledger.devices.family import Device, Refusal
 from tauledger.devices.field_effect import mos_region
 from tauledger.engine.client import Engine
-from tauledger.errors import InputError
 from tauledger.network.assemble import Network
 
 
@@ -322,10 +321,22 @@ def test_power_mos_agrees_with_scale_and_temperature(
     assert_agrees(circuit, engine, within)
 
 
-def test_a_conducting_body_diode_is_told(engine: Engine) -> None:
-    circuit = power_stage(model("vdmos", 1, **POWER), 0.0, -5.0)
-    with pytest.raises(InputError, match="M1: its body diode conducts"):
-        rebuilt(circuit, engine)
+@pytest.mark.parametrize("channel", ["n", "p"])
+@pytest.mark.parametrize(("gate", "supply", "celsius"), [(0.0, -5.0, 27.0), (0.0, -5.0, 125.0), (0.0, -0.3, -40.0)])
+def test_power_mos_is_fitted_where_its_body_diode_conducts(
+    gate: float, supply: float, celsius: float, channel: str, engine: Engine
+) -> None:
+    card = model("vdmos", 1, **{**POWER, **({"pchan": 1.0, "vto": -2.0} if channel == "p" else {})})
+    network, devices = rebuilt(power_stage(card, gate, supply, temperature_c=celsius), engine)
+    assert disagreement(network, engine, IN_BAND) < 1e-6
+    assert devices[0].kind == ("pmos" if channel == "p" else "nmos")
+    assert any(part.kind == "block" for part in devices[0].parts)
+
+
+def test_power_mos_just_forward_is_exact(engine: Engine) -> None:
+    """At some 40 mV the diode carries nothing yet: the channel does."""
+    _, device = assert_agrees(power_stage(model("vdmos", 1, **POWER), 3.0, -5.0, "m=2"), engine)
+    assert not any(part.kind == "block" for part in device.parts)
 
 
 @pytest.mark.parametrize(

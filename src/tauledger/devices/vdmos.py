@@ -1,20 +1,22 @@
 """The vertical power MOS transistor: channel, gate charge and series resistances by reading, and its body diode.
 
 The body diode stands between the outer drain and source, behind R_B on the side of the source. Its capacitance has a
-reading (`cds`), its conductance has none: reverse biased it is gmin, and what the saturation current adds to it is seen
-from 125 °C on (1e-8 of the response). Where it conducts, this family cannot tell it. The shunt R_DS counts in ngspice's
-operating point, and (measured) not in its AC analysis.
+reading (`cds`), its conductance has none. Reverse biased it is gmin; what the saturation current adds to it is seen
+from 125 °C on (1e-8 of the response). Where it conducts, the instance is measured alone and fitted. The shunt R_DS
+counts in ngspice's operating point, and (measured) not in its AC analysis.
 """
 
 from __future__ import annotations
 
+from msgspec.structs import replace
+
 from tauledger.circuit import Circuit, Element, Model
 from tauledger.devices.family import Device, Family, Refusal, Terminal, inner_node, names, readings_of
 from tauledger.devices.field_effect import Ends, cell_of, channel, figures, kept, mos_region, series
+from tauledger.devices.fitted import field_effect, isolated
 from tauledger.devices.parts import capacitance, conductance
 from tauledger.devices.temperature import polynomial_factor, temperature_rise
-from tauledger.errors import InputError
-from tauledger.solution import Bias, Observation
+from tauledger.solution import Bias, Isolation, Observation
 
 READINGS = (
     *("id", "vgs", "vds", "von", "gm", "gds", "cgs", "cgd", "cds"),
@@ -23,6 +25,8 @@ READINGS = (
 GMIN = 1e-12
 # A body diode at this forward voltage carries less than gmin would at 1 V: 0.1 V are four times V_T.
 FORWARD_VOLT = 0.1
+# The node behind R_B has a blank in its name in older versions of ngspice.
+INNER = ("drain", "source", "gate", "body diode", "body_diode")
 
 
 def _observe(element: Element) -> Observation | None:
@@ -40,7 +44,28 @@ def is_p_channel(model: Model) -> bool:
     return any(model.parameter(name, 0.0) for name in ("pchan", "vdmosp"))
 
 
+def diode_conducts(circuit: Circuit, element: Element, bias: Bias) -> bool:
+    """Say whether the body diode is so far forward that its conductance counts."""
+    sign = -1.0 if is_p_channel(circuit.model(element.model)) else 1.0
+    drain, source = (float(bias.voltages[element.nodes[place]]) for place in (0, 2))
+    return sign * (source - drain) > FORWARD_VOLT
+
+
+def _isolate(circuit: Circuit, element: Element, bias: Bias) -> Isolation | None:
+    """Measure the instance alone where its body diode conducts."""
+    return isolated(INNER)(circuit, element, bias) if diode_conducts(circuit, element, bias) else None
+
+
+def _fitted(circuit: Circuit, element: Element, bias: Bias) -> Device:
+    """Give the device as its terminals answer, under the type of its channel."""
+    kind = "pmos" if is_p_channel(circuit.model(element.model)) else "nmos"
+    models = tuple(replace(model, type=kind) if model.name == element.model else model for model in circuit.models)
+    return field_effect(replace(circuit, models=models), element, bias)
+
+
 def _linearise(circuit: Circuit, element: Element, bias: Bias) -> Device:
+    if diode_conducts(circuit, element, bias):
+        return _fitted(circuit, element, bias)
     model = circuit.model(element.model)
     read = readings_of(bias, element)
     name = element.name
@@ -48,12 +73,6 @@ def _linearise(circuit: Circuit, element: Element, bias: Bias) -> Device:
     rise = temperature_rise(circuit, element, model)
     sign = -1.0 if is_p_channel(model) else 1.0
     drain, gate, source = (circuit.nodes[node] for node in element.nodes[:3])
-    v_ds = sign * float(bias.voltages[element.nodes[0]] - bias.voltages[element.nodes[2]])
-    if -v_ds > FORWARD_VOLT:
-        raise InputError(
-            f"{name}: its body diode conducts at the operating point, and ngspice does not tell its conductance",
-            "leave the diode out (IS small), and write a diode of its own beside the transistor",
-        )
     g_drain = read["drainconductance"] if read["rd"] > 0.0 else 0.0
     g_source = read["sourceconductance"] if read["rs"] > 0.0 else 0.0
     g_gate, g_body = (_conductance(model, resistance, m, rise) for resistance in ("rg", "rb"))
@@ -138,4 +157,5 @@ VDMOS = Family(
     )
     | FLAGS,
     flags=FLAGS,
+    isolate=_isolate,
 )

@@ -141,9 +141,10 @@ def isolate(spice: Spice, request: Message) -> Message:
     spice.command("remcirc")
     spice.command("destroy all")
     load = spice.load(request["deck"])
-    spice.command("save " + request["vectors"][0])
-    for first in range(1, len(request["vectors"]), SAVED_AT_ONCE):
-        spice.command("save " + " ".join(request["vectors"][first : first + SAVED_AT_ONCE]))
+    # one inner node has a blank in its name: m1#body diode
+    saved = [f'"{name}"' if " " in name else name for name in request["vectors"]]
+    for first in range(0, len(saved), SAVED_AT_ONCE):
+        spice.command("save " + " ".join(saved[first : first + SAVED_AT_ONCE]))
     driven: list[list[Message]] = []
     for sources in request["sources"]:
         for source in sources:
