@@ -13,10 +13,14 @@ _NUMBERED = re.compile(r"(.+)\.\d+")
 ROUNDING = 1e-12
 
 
-def bin_bases(names: Iterable[str]) -> frozenset[str]:
-    """Give the names under which bins can be called."""
-    found = (_NUMBERED.fullmatch(name) for name in names)
-    return frozenset(match.group(1) for match in found if match is not None)
+def bins_of(names: Iterable[str]) -> dict[str, list[str]]:
+    """Give the names under which bins can be called, each with the names of its bins in the order given."""
+    found: dict[str, list[str]] = {}
+    for name in names:
+        match = _NUMBERED.fullmatch(name)
+        if match is not None:
+            found.setdefault(match.group(1), []).append(name)
+    return found
 
 
 def fits(model: Model, parameters: Mapping[str, float]) -> bool:

@@ -11,7 +11,6 @@ from tauledger.devices.family import Refusal, never_refused
 from tauledger.errors import Diagnostic, InputError, NetlistError
 from tauledger.netlist.assignments import ALL
 from tauledger.netlist.behaviour import MOST_DEEP, MOST_PARTS, extent, formula_of
-from tauledger.netlist.bins import bin_bases
 from tauledger.netlist.bulk import add_run
 from tauledger.netlist.conditions import counts, define_all
 from tauledger.netlist.controlled import behavioural, controlled, coupling, line
@@ -115,7 +114,6 @@ def _element(
     if letter == "X":
         _instance(netlist, draft, around, faults, number, site, card, name)
         return
-    seen: dict[str, tuple[Surroundings, int]] = {}
     if letter in SOURCES:
         part = _source(site, items, letter, around.scope)
     elif letter in CONTROLLED:
@@ -128,16 +126,18 @@ def _element(
         part = line(site, card, around.scope)
     else:
         seen = visible_models(netlist, around)
-        bases = bin_bases(seen) if letter == "M" else frozenset()
-        part = _modelled(site, card, letter, frozenset(seen) | bases, around.scope)
+        part = _modelled(site, card, letter, seen.with_bins if letter == "M" else seen.names, around.scope)
         part = _scaled(draft, part, letter)
-        if part.model is not None and fold(part.model.text) not in seen:
+        if part.model is not None and fold(part.model.text) not in seen.models:
             part = replace(part, model=picked_bin(netlist, draft, seen, part, part.model, letter, site))
     part = _multiplied(around, part, letter, name, site)
     if letter in PASSIVES and part.model is None and [key for key, _ in part.parameters] == ["value"]:
         _plain(netlist, draft, around, part, letter, name, number, site)
         return
-    model = None if part.model is None else model_for(netlist, draft, seen[fold(part.model.text)], part.model, letter)
+    model = None
+    if part.model is not None:
+        found = visible_models(netlist, around).models[fold(part.model.text)]
+        model = model_for(netlist, draft, found, part.model, letter)
     element = Element(
         letter=letter,
         name=name,

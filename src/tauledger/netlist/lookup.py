@@ -2,13 +2,11 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
-
 from msgspec.structs import replace
 
 from tauledger.circuit import ReadingNote, fold
 from tauledger.devices.catalogue import families_of
-from tauledger.netlist.bins import fits
+from tauledger.netlist.bins import bins_of, fits
 from tauledger.netlist.conditions import counts
 from tauledger.netlist.diagnostics import Site, nearest
 from tauledger.netlist.draft import Draft
@@ -17,27 +15,28 @@ from tauledger.netlist.items import Word
 from tauledger.netlist.letters import MODELLED, PASSIVE_MODELS, PASSIVES
 from tauledger.netlist.models import ModelCard, base_name, model_name, read_model
 from tauledger.netlist.netlist import Netlist
-from tauledger.netlist.surroundings import Surroundings
+from tauledger.netlist.surroundings import Surroundings, Visible
 
 
-def visible_models(netlist: Netlist, around: Surroundings) -> dict[str, tuple[Surroundings, int]]:
-    """Give the models that can be seen from an instance, by folded name: where each stands and its card.
-
-    The nearest counts, of two in one place the first. Worked out once for each instance.
-    """
+def visible_models(netlist: Netlist, around: Surroundings) -> Visible:
+    """Give the models that can be seen from an instance; worked out once for each instance."""
     if not around.seen:
-        around.seen.append(dict(reversed(list(_all_models(netlist, around)))))
+        models: dict[str, tuple[Surroundings, int]] = {}
+        twins: dict[str, list[int]] = {}
+        here: Surroundings | None = around
+        while here is not None:
+            for number in here.definition.models:
+                if not counts(netlist, number, here.scope, here.context):
+                    continue
+                name = model_name(netlist.items[number])
+                if name not in models:
+                    models[name] = (here, number)
+                elif here is around:
+                    twins.setdefault(name, []).append(number)
+            here = here.lexical
+        bins = bins_of(models)
+        around.seen.append(Visible(models, bins, twins, frozenset(models), frozenset([*models, *bins])))
     return around.seen[0]
-
-
-def _all_models(netlist: Netlist, around: Surroundings) -> Iterator[tuple[str, tuple[Surroundings, int]]]:
-    """Run through the models of an instance and of what is around its definition, nearest first."""
-    here: Surroundings | None = around
-    while here is not None:
-        for number in here.definition.models:
-            if counts(netlist, number, here.scope, here.context):
-                yield model_name(netlist.items[number]), (here, number)
-        here = here.lexical
 
 
 def model_for(netlist: Netlist, draft: Draft, found: tuple[Surroundings, int], word: Word, letter: str) -> ModelCard:
@@ -72,12 +71,7 @@ def model_for(netlist: Netlist, draft: Draft, found: tuple[Surroundings, int], w
         if parameter in settable:
             values[parameter] = draft.changed_models.pop((owner, parameter))[2]
     card = replace(card, model=replace(card.model, parameters=tuple(values.items())))
-    twins = [
-        other
-        for other in home.definition.models
-        if model_name(netlist.items[other]) == key and counts(netlist, other, home.scope, home.context)
-    ]
-    for twin in twins[1:]:
+    for twin in visible_models(netlist, home).twins.get(key, []):
         says = f"model {name.text} is defined twice; the first definition counts, as in ngspice"
         home.scope.notes.append(ReadingNote(Site(netlist.files, netlist.cards[twin]).where, says))
     home.models[key] = card
@@ -90,7 +84,7 @@ def _base(netlist: Netlist, draft: Draft, home: Surroundings, number: int, lette
     word = base_name(netlist.items[number])
     if word is None:
         return None
-    seen = visible_models(netlist, home)
+    seen = visible_models(netlist, home).models
     found = seen.get(fold(word.text))
     if found is None or found[1] == number or base_name(netlist.items[found[1]]) is not None:
         problem = "is a kind of another one itself" if found else "does not exist"
@@ -103,17 +97,15 @@ def _base(netlist: Netlist, draft: Draft, home: Surroundings, number: int, lette
 def picked_bin(
     netlist: Netlist,
     draft: Draft,
-    seen: dict[str, tuple[Surroundings, int]],
+    seen: Visible,
     part: ElementCard,
     word: Word,
     letter: str,
     site: Site,
 ) -> Word:
     """Pick the bin of a model (name.1, name.2, ..) by length and width."""
-    key = fold(word.text)
-    numbered = sorted((number, name) for name, (_, number) in seen.items() if name.rpartition(".")[0] == key)
-    bins = [model_for(netlist, draft, seen[name], Word(name, word.at), letter).model for _, name in numbered]
-    for model in bins:
+    for name in seen.bins[fold(word.text)]:
+        model = model_for(netlist, draft, seen.models[name], Word(name, word.at), letter).model
         if fits(model, dict(part.parameters)):
             own = fold(model.name).rpartition(":")[2]
             return Word(own, word.at)

@@ -31,7 +31,22 @@ class Surroundings(Struct, frozen=True):
     caller: Surroundings | None
     lexical: Surroundings | None
     models: dict[str, ModelCard]
-    seen: list[dict[str, tuple[Surroundings, int]]]
+    seen: list[Visible]
+
+
+class Visible(Struct, frozen=True):
+    """The models that can be seen from an instance, by folded name: where each stands and its card.
+
+    The nearest counts, of two in one place the first. bins: names of the bins by the name under which they are called.
+    twins: the cards of later models of the instance's own that have the name of an earlier one.
+    names, with_bins: of the models, and of all that can be called.
+    """
+
+    models: dict[str, tuple[Surroundings, int]]
+    bins: dict[str, list[str]]
+    twins: dict[str, list[int]]
+    names: frozenset[str]
+    with_bins: frozenset[str]
 
 
 def node_of(netlist: Netlist, draft: Draft, around: Surroundings, word: Word) -> int:
