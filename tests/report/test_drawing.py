@@ -125,6 +125,9 @@ def test_passive_nodes_before_the_first_stage_are_taken_together() -> None:
     assert len(drawn_stages(pads)) == 2
 
 
-def test_a_passive_node_after_a_stage_makes_a_table_of_it() -> None:
+def test_a_passive_node_after_a_stage_has_a_source_of_its_own() -> None:
     first, second = ECHO_PREAMP.stages
-    assert drawn_stages(replace(ECHO_PREAMP, stages=(first, second, replace(second, owner="")))) == ()
+    pad = replace(first, owner="", node="e", gain_hand=0.5, gain_exact=0.5)
+    told = [words for *_, words in texts(drawn_stages(replace(ECHO_PREAMP, stages=(first, second, pad)))[2][1])]
+    assert told[1:3] == ["0.5 ·", "v(out)"]
+    assert "Gm·v(out)" not in told

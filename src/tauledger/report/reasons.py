@@ -86,5 +86,5 @@ def _placed(where: str, says: str) -> str:
 
 def _sentence(text: str) -> str:
     """Open with a capital unless the first word is a name or a symbol, close with a full stop."""
-    start = text[:1].upper() if text[1:2].islower() else text[:1]
+    start = text[:1].upper() if text[1:2].islower() or text[1:2].isspace() else text[:1]
     return start + text[1:] + ("" if text.endswith((".", "!", "?")) else ".")

@@ -48,17 +48,15 @@ class Element(Struct, frozen=True):
 def drawable(review: Review) -> tuple[Stage, ...]:
     """Give the chain of nodes that can be drawn, at most 24 and the first with its gain from the source.
 
-    Passive nodes before the first stage are taken together. Empty for other networks: of two halves, with a passive
-    node further on, or with a stage whose gain by hand is not the exact one within 10 %.
+    Passive nodes before the first stage are taken together. Empty for other networks: of two halves, or with
+    a stage whose gain by hand is not the exact one within 10 %.
     """
     rows = {node.name: node for node in review.nodes}
     leading = 0
     while leading < len(review.stages) and not review.stages[leading].owner:
         leading += 1
     before, chain = review.stages[: max(leading - 1, 0)], review.stages[max(leading - 1, 0) :]
-    if not all(_as_drawn(stage, rows) for stage in review.stages) or not all(stage.owner for stage in chain[1:]):
-        return ()
-    if not chain:
+    if not chain or not all(_as_drawn(stage, rows) for stage in review.stages):
         return ()
     gain = math.prod(stage.gain_hand or 0.0 for stage in (*before, chain[0]))
     return (replace(chain[0], gain_hand=gain), *chain[1:MOST_STAGES])
@@ -82,20 +80,27 @@ def drawn_stages(review: Review) -> tuple[tuple[str, str], ...]:
         return ()
     rows = {node.name: node for node in review.nodes}
     first = chain[0]
-    drawings = [(f"Source to {rows[first.node].title}", _draw_input(review, first, rows[first.node]))]
+    drive = review.drive[0].source if len(review.drive) == 1 else "sources"
+    drawings = [
+        (f"Source to {rows[first.node].title}", _draw_passive(review, first, rows[first.node], drive, number_of=0))
+    ]
     for k, (before, stage) in enumerate(pairwise(chain), start=1):
         what = f"{stage.role} {stage.owner}".strip()
         heading = f"{what[:1].upper()}{what[1:]}: {rows[before.node].title} to {rows[stage.node].title}"
-        drawings.append((heading, _draw_stage(review, rows[before.node], stage, rows[stage.node], number_of=k)))
+        if stage.owner:
+            svg = _draw_stage(review, rows[before.node], stage, rows[stage.node], number_of=k)
+        else:
+            svg = _draw_passive(review, stage, rows[stage.node], f"v({before.node})", number_of=k)
+        drawings.append((heading, svg))
     return tuple(drawings)
 
 
-def _draw_input(review: Review, first: Stage, node: NodeRow) -> str:
-    """Draw the source with the resistance and every capacitance that it sees at the first node."""
+def _draw_passive(review: Review, stage: Stage, node: NodeRow, drive: str, *, number_of: int) -> str:
+    """Draw what drives a node without amplifying, with the resistance and every capacitance that it sees there."""
     pieces: list[str] = []
-    drive = review.drive[0].source if len(review.drive) == 1 else "sources"
-    x = _source(pieces, (f"{number(first.gain_hand, '', 3)} ·", drive), node, _elements(node, review)[1:])
-    return _svg(pieces, x, key="stage-0", title=f"Small-signal circuit at the input: {_resistance(node)}")
+    x = _source(pieces, (f"{number(stage.gain_hand, '', 3)} ·", drive), node, _elements(node, review)[1:])
+    title = f"Small-signal circuit of node {number_of + 1}: {_resistance(node)}"
+    return _svg(pieces, x, key=f"stage-{number_of}", title=title)
 
 
 def _draw_stage(review: Review, before: NodeRow, stage: Stage, node: NodeRow, *, number_of: int) -> str:

@@ -111,7 +111,7 @@ def _size(root: PoleFacts | ZeroFacts) -> float:
 
 def _kind(root: Root) -> str:
     word = "pole" if root.is_pole else "zero"
-    told = f"complex {word} pair, {_quality(root)}" if root.imag_hz else f"real {word}"
+    told = f"complex {word} pair, {_quality(root)}" if root.imag_hz else f"real\u00a0{word}"
     if root.real_hz > 0.0:
         told += ", right half-plane" + (": unstable" if root.is_pole else "")
     return told

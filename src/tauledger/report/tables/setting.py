@@ -10,7 +10,7 @@ from tauledger.report.tables.grid import Column, Grid, GridRow
 from tauledger.report.wording import NO_NUMBER, fraction, nominal, number, part_unit, symbol
 
 # More columns than these are wider than a page.
-FIGURES_A_TABLE = 7
+FIGURES_A_TABLE = 9
 
 
 def drive_and_load(review: Review) -> Grid:
@@ -75,19 +75,13 @@ def devices(review: Review) -> tuple[Grid, ...]:
         groups.setdefault(tuple(figure.symbol for figure in device.figures), []).append(device)
     grids = []
     for symbols, members in groups.items():
-        for start in range(0, max(len(symbols), 1), FIGURES_A_TABLE):
-            part = slice(start, start + FIGURES_A_TABLE)
-            shown = map(Column, map(symbol, symbols[part]))
-            heads = (Column("Device", "l"), Column("kind", "l"), Column("region", "l"), *shown)
+        tables = max(1, math.ceil(len(symbols) / FIGURES_A_TABLE))
+        size = max(1, math.ceil(len(symbols) / tables))
+        for start in range(0, max(len(symbols), 1), size):
+            part = slice(start, start + size)
+            heads = (Column("Device", "l"), *map(Column, map(symbol, symbols[part])))
             rows = tuple(
-                GridRow(
-                    (
-                        device.name,
-                        device.kind,
-                        device.region,
-                        *(number(figure.value, figure.unit, 3) for figure in device.figures[part]),
-                    )
-                )
+                GridRow((_device(device), *(number(figure.value, figure.unit, 3) for figure in device.figures[part])))
                 for device in members
             )
             grids.append(Grid("Operating points and small-signal parameters", heads, rows))
@@ -137,6 +131,11 @@ def sums(review: Review) -> Grid:
         rows.append(("Sum of lower edges", number(lower.sum_hz, "Hz"), "−Σ pole/2π", number(lower.pole_sum_hz, "Hz")))
     heads = (Column("Sum", "l"), Column("value"), Column("must equal", "l"), Column("value"))
     return Grid("Sums that must come out the same two ways", heads, tuple(map(GridRow, rows)))
+
+
+def _device(device: DeviceFacts) -> str:
+    region = "" if device.region == "active" else f", {device.region}"
+    return f"{device.name} {device.kind}{region}"
 
 
 def _drive(drive: DriveFacts) -> str:
