@@ -12,11 +12,12 @@ from tauledger.errors import Diagnostic, InputError, NetlistError
 from tauledger.netlist.assignments import ALL
 from tauledger.netlist.behaviour import MOST_DEEP, MOST_PARTS, extent, formula_of
 from tauledger.netlist.bulk import add_run
-from tauledger.netlist.conditions import counts, define_all
+from tauledger.netlist.conditions import counts
 from tauledger.netlist.controlled import behavioural, controlled, coupling, line
-from tauledger.netlist.diagnostics import MOST_DIAGNOSTICS, Site, nearest, visible
-from tauledger.netlist.draft import MOST_ELEMENTS, MOST_INSTANCES, MOST_NESTED_INSTANCES, Draft, Row
+from tauledger.netlist.diagnostics import MOST_DIAGNOSTICS, Site, visible
+from tauledger.netlist.draft import MOST_ELEMENTS, MOST_INSTANCES, Draft, Row
 from tauledger.netlist.elements import ElementCard, Fields, InstanceCard, device, fields, instance, multiplicity
+from tauledger.netlist.instances import check_nesting, find_definition, open_scope, own_names
 from tauledger.netlist.items import Item, Setting, Word
 from tauledger.netlist.letters import (
     CONTROLLED,
@@ -32,7 +33,7 @@ from tauledger.netlist.models import ModelCard
 from tauledger.netlist.netlist import Definition, Netlist
 from tauledger.netlist.passive import impossible, passive
 from tauledger.netlist.runs import Run
-from tauledger.netlist.scopes import Binding, Scope, define, number_of, work_out_all
+from tauledger.netlist.scopes import Scope, number_of, work_out_all
 from tauledger.netlist.sources import source
 from tauledger.netlist.surroundings import Surroundings, existing_node, node_of
 
@@ -344,20 +345,20 @@ def _instance(
     name: str,
 ) -> None:
     call = instance(site, card)
-    definition, home = _definition(around, call.subcircuit, site)
+    definition, home = find_definition(around, call.subcircuit, site)
     where = Site(netlist.files, netlist.cards[definition.card]).where
     if len(call.nodes) != len(definition.ports):
         ports = " ".join(port.text for port in definition.ports)
         message = f"subcircuit {definition.name} has {len(definition.ports)} nodes, not {len(call.nodes)}"
         raise site.fault(call.subcircuit, message, f"{where}: .subckt {definition.name} {ports}")
-    _check_nesting(around, definition, call.subcircuit, site, where)
+    check_nesting(around, definition, call.subcircuit, site, where)
     if len(draft.instances) > MOST_INSTANCES:
         raise site.fault(0, f"the circuit has more than {MOST_INSTANCES} instances of subcircuits")
     path = len(draft.instances)
     draft.instances.append(Instance(name, definition.name, number, definition.card, around.path))
     context = (f"in {visible(name)} ({site.where}), subcircuit {visible(definition.name)} ({where})", *around.context)
     draft.contexts.append(context)
-    scope = _scope(netlist, around, definition, call, site, context)
+    scope = open_scope(netlist, around, definition, call, site, context)
     draft.scopes.append(scope)
     inner = Surroundings(
         definition=definition,
@@ -381,74 +382,12 @@ def _instance(
         flatten(netlist, draft, inner, faults)
 
 
-def _check_nesting(around: Surroundings, definition: Definition, item: Word, site: Site, where: str) -> None:
-    if len(around.context) >= MOST_NESTED_INSTANCES:
-        raise site.fault(0, f"subcircuits are nested more than {MOST_NESTED_INSTANCES} deep")
-    here: Surroundings | None = around
-    while here is not None:
-        if here.definition is definition:
-            raise site.fault(item, f"subcircuit {definition.name} contains itself", f"it begins at {where}")
-        here = here.caller
-
-
-def _definition(around: Surroundings, name: Word, site: Site) -> tuple[Definition, Surroundings]:
-    """Find a subcircuit where the card stands, else in the definitions around it; give it with its home."""
-    seen: list[str] = []
-    here: Surroundings | None = around
-    while here is not None:
-        for definition in here.definition.definitions:
-            if fold(definition.name) == fold(name.text):
-                return definition, here
-            seen.append(definition.name)
-        here = here.lexical
-    hint = nearest(name.text, seen, otherwise="define it with .subckt, or include the file that does")
-    raise site.fault(name, f"no subcircuit is called {name.text!r}", hint)
-
-
-def _own_names(netlist: Netlist, definition: Definition) -> dict[str, str]:
-    """Give the parameters that a subcircuit defines, folded and as written."""
-    settings = list(definition.defaults)
-    for card in definition.parameters:
-        settings += [item for item in netlist.items[card] if isinstance(item, Setting)]
-    return {fold(setting.name.text): setting.name.text for setting in settings}
-
-
-def _scope(
-    netlist: Netlist,
-    around: Surroundings,
-    definition: Definition,
-    call: InstanceCard,
-    site: Site,
-    context: tuple[str, ...],
-) -> Scope:
-    """Open the scope of an instance: what X gives wins over `.param` in the body, that over the default."""
-    scope = around.scope.inner()
-    header = Site(netlist.files, netlist.cards[definition.card], context)
-    for setting in definition.defaults:
-        define(scope, Binding(header, setting))
-    own = _own_names(netlist, definition)
-    for setting in call.settings:
-        name = fold(setting.name.text)
-        if name in own:
-            define(scope, Binding(site, setting, actual=True))
-        elif name != "m" and definition.defaults:
-            says = f"subcircuit {definition.name} has no parameter {setting.name.text}: read past, as ngspice does"
-            near = nearest(setting.name.text, own.values())
-            scope.notes.append(ReadingNote(site.where, f"{says}; {near}" if near else says))
-        elif name != "m":
-            message = f"subcircuit {definition.name} has no parameter {setting.name.text}"
-            otherwise = f"its parameters: {', '.join(sorted(own.values()))}" if own else "it has none"
-            raise site.fault(setting.name, message, nearest(setting.name.text, own.values(), otherwise=otherwise))
-    define_all(netlist, definition, scope, context)
-    return scope
-
-
 def _instance_m(
     around: Surroundings, definition: Definition, call: InstanceCard, site: Site, netlist: Netlist
 ) -> float:
     """Give the product of m for the body: m on X multiplies unless the subcircuit has a parameter of that name."""
     given = next((setting for setting in call.settings if fold(setting.name.text) == "m"), None)
-    if given is None or "m" in _own_names(netlist, definition):
+    if given is None or "m" in own_names(netlist, definition):
         return around.m
     own = multiplicity(site, given, around.scope)
     return _product(around, own, around.prefix + site.card.text.split(maxsplit=1)[0], site)
