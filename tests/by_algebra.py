@@ -18,6 +18,7 @@ from tauledger.devices.family import Device
 from tauledger.devices.parts import Part, resistance, voltage_source
 from tauledger.hand.combine import combine_lower, combine_upper
 from tauledger.hand.estimate import InnerLine, LookingIn, LowerRow, MillerTerm, SignalNode
+from tauledger.hand.lower import nearest_zero_owner
 from tauledger.hand.steps import lower_steps, upper_steps
 from tauledger.network.assemble import Network, incidence
 from tauledger.network.bands import Bands, classify, find_midband
@@ -82,7 +83,13 @@ def evidence(
         nodes, capacitors = signal_nodes(bands.upper), capacitor_rows(bands.lower)
         above, below = combine_upper(nodes, *roots(bands.upper)), combine_lower(capacitors, *roots(bands.lower))
         upper = replace(upper, combined=above, steps=upper_steps(nodes, above, full_hz=upper.hz))
-        lower = replace(lower, combined=below, steps=lower_steps(capacitors, below, full_hz=lower.hz))
+        lower = replace(
+            lower,
+            combined=below,
+            steps=lower_steps(
+                capacitors, below, full_hz=lower.hz, zero_owner=nearest_zero_owner(bands, capacitors, below)
+            ),
+        )
     return Evidence(bands, poles, zeros, devices, nodes, capacitors, upper, lower, stepped)
 
 

@@ -21,7 +21,7 @@ from tauledger.hand.combine import Combined, combine_lower, combine_upper
 from tauledger.hand.effects import pole_effects
 from tauledger.hand.estimate import HandEstimate
 from tauledger.hand.halves import images
-from tauledger.hand.lower import lower_rows
+from tauledger.hand.lower import lower_rows, nearest_zero_owner
 from tauledger.hand.methods import methods, weighted_lower, weighted_upper
 from tauledger.hand.poles import HandPole, hand_poles
 from tauledger.hand.stages import stage_rows
@@ -174,7 +174,13 @@ def _by_hand(numbers: Numbers, constants: OpenConstants) -> tuple[HandEstimate, 
         part_resistance=part_resistances(bands, devices),
         steps=(
             *upper_steps(nodes, upper, full_hz=high, stable=numbers.poles.stable),
-            *lower_steps(capacitors, lower, full_hz=low, stable=numbers.poles.stable),
+            *lower_steps(
+                capacitors,
+                lower,
+                full_hz=low,
+                stable=numbers.poles.stable,
+                zero_owner=nearest_zero_owner(bands, capacitors, lower),
+            ),
         ),
         methods=methods(
             upper,

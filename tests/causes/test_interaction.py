@@ -23,7 +23,7 @@ def test_two_capacitors_of_25_hz_push_theirs_to_0_13_and_50_hz() -> None:
     assert cause is not None
     assert cause.quantity == "f_L"
     assert cause.effect == pytest.approx(49.86 / 38.84 - 1, abs=1e-3)
-    assert cause.says.endswith("the poles are at 49.9 Hz and 131 mHz")
+    assert cause.says.endswith("the poles are at 49.9 Hz and 131 mHz, 38.8 Hz becomes 49.9 Hz")
 
 
 def test_coupling_and_bypass_that_do_not_see_each_other_do_not_interact() -> None:

@@ -22,7 +22,8 @@ def test_bypass_zero_makes_the_short_circuit_sum_too_high() -> None:
     assert (cause.cause, cause.quantity, cause.where) == ("zero-near-edge", "f_L", "C3, zero at 200 Hz")
     assert cause.effect == pytest.approx(412.7 / 500.5 - 1, abs=1e-3)
     assert cause.says == (
-        "C3 has its zero at 200 Hz, not at DC: the bypass zero makes the short-circuit sum, 505 Hz, too high"
+        "C3 has its zero at 200 Hz, not at DC: it makes the short-circuit sum, 505 Hz, too high; "
+        "the poles alone give 501 Hz, with the zeros 413 Hz"
     )
     assert cause.instead == "keep the zero: √(Σp² − 2·Σz²) gives 413 Hz"
 

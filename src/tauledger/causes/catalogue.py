@@ -10,6 +10,7 @@ from tauledger.causes.complex_poles import complex_poles_above, complex_poles_be
 from tauledger.causes.edges_interact import lower_edge_near_upper, upper_edge_near_lower
 from tauledger.causes.evidence import Evidence
 from tauledger.causes.feedback_ignored import loop_ignored, positive_gain_bridging
+from tauledger.causes.further_poles import further_poles_above, further_poles_below
 from tauledger.causes.gain_falls_first import gain_falls_first
 from tauledger.causes.interaction import interaction_above, interaction_below
 from tauledger.causes.no_dominant_pole import no_dominant_pole_above, no_dominant_pole_below
@@ -24,6 +25,8 @@ CAUSES: tuple[Callable[[Evidence], Cause | None], ...] = (
     gain_falls_first,
     interaction_above,
     interaction_below,
+    further_poles_above,
+    further_poles_below,
     no_dominant_pole_above,
     no_dominant_pole_below,
     complex_poles_above,

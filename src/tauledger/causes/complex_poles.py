@@ -32,6 +32,8 @@ def _complex_poles(edge: EdgeEvidence) -> Cause | None:
     if max(f0 / edge.hz, edge.hz / f0) > NEAR:
         return None
     instead = "take the poles themselves: more than two of them count"
+    if combined.all_poles is not None:
+        instead += f", and all give {in_hertz(combined.all_poles)}"
     if combined.two_coefficients is not None and not combined.two_coefficients_overshoot:
         coefficients = ("1/(2π·√b2)", "√b2/b1") if edge.edge == "f_high" else ("√a2/2π", "√a2/a1")
         instead = (

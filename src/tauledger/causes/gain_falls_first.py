@@ -17,19 +17,27 @@ from tauledger.causes.evidence import (
     rows_that_count,
 )
 from tauledger.circuit import GROUND
+from tauledger.hand.combine import Combined
 from tauledger.hand.estimate import InnerLine, MillerTerm, SignalNode
 from tauledger.network.assemble import Network
 from tauledger.network.solve import admittance
 from tauledger.record import NamedNumber
 
+# a part of a row's time constant below this is not what makes its pole
+FAIR_PART = 0.2
+
 
 class _Fallen(Struct, frozen=True):
-    """A Miller term whose factor |1 − K| at the pole that it makes by hand is less than half of that at mid-band."""
+    """A Miller term whose factor |1 − K| at the pole that it makes by hand is less than half of that at mid-band.
+
+    part_of_row: R·C·factor of the term over the row's time constant.
+    """
 
     row: SignalNode
     term: MillerTerm
     hand_hz: float
     factor: float
+    part_of_row: float
 
 
 def gain_falls_first(evidence: Evidence) -> Cause | None:
@@ -43,19 +51,21 @@ def gain_falls_first(evidence: Evidence) -> Cause | None:
         return None
     fallen = [found for row in rows_that_count(evidence.nodes) for found in _fallen(evidence, row)]
     fallen = [found for found in fallen if found.hand_hz < 0.5 * hertz(poles[1])]
-    if not fallen:
+    fallen = [found for found in fallen if found.part_of_row >= FAIR_PART]
+    worst = max(fallen, key=lambda found: found.part_of_row * found.row.time_constant_s, default=None)
+    combined = evidence.upper.combined
+    if worst is None or combined is None:
         return None
-    worst = max(fallen, key=lambda found: found.term.farad * found.term.factor)
     part = in_words(evidence.bands.network.part(worst.term.part))
     return Cause(
         cause="gain-falls-first",
         quantity="f_H",
         effect=effect,
         where=worst.row.title,
-        says=f"{part} counts {worst.term.factor:.3g} times at {worst.row.title}, a pole at "
+        says=f"{part} counts {_times(worst.term.factor)} times at {worst.row.title}, a pole at "
         f"{in_hertz(worst.hand_hz)} by hand; there the gain has fallen and it counts only {worst.factor:.2g} times: "
         f"the second pole is at {in_hertz(hertz(poles[1]))}",
-        instead="take both poles from b1 and b2 (1/b1 and b1/b2), not one pole per node",
+        instead=f"take both poles from b1 and b2 (1/b1 and b1/b2), not one pole per node{_moved(combined)}",
         numbers=(
             NamedNumber("Miller factor at mid-band", worst.term.factor, ""),
             NamedNumber("Miller factor at the pole by hand", worst.factor, ""),
@@ -63,6 +73,17 @@ def gain_falls_first(evidence: Evidence) -> Cause | None:
             NamedNumber("second pole", hertz(poles[1]), "Hz"),
         ),
     )
+
+
+def _times(factor: float) -> str:
+    return f"{factor:.3g}" if factor < 1e3 else f"{factor:,.0f}"
+
+
+def _moved(combined: Combined) -> str:
+    hz = combined.all_poles if combined.two_coefficients_overshoot else combined.two_coefficients
+    if hz is None or combined.lowest is None:
+        return ""
+    return f": {in_hertz(hz)} instead of {in_hertz(combined.lowest)}"
 
 
 def _fallen(evidence: Evidence, row: SignalNode) -> list[_Fallen]:
@@ -74,7 +95,8 @@ def _fallen(evidence: Evidence, row: SignalNode) -> list[_Fallen]:
                 continue
             gain = _gain(evidence, line, term, omega)
             if gain is not None and abs(1.0 - gain) < 0.5 * term.factor:
-                found.append(_Fallen(row, term, hertz(omega), abs(1.0 - gain)))
+                part = line.resistance.ohm * term.farad * term.factor / row.time_constant_s
+                found.append(_Fallen(row, term, hertz(omega), abs(1.0 - gain), part))
     return found
 
 

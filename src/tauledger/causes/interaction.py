@@ -44,12 +44,15 @@ def _interaction(edge: EdgeEvidence) -> Cause | None:
     if combined.coefficients.separation <= SEPARATED and combined.two_coefficients is not None:
         both = "b1 and b2" if edge.edge == "f_high" else "a1 and a2"
         instead = f"give no capacitor a pole of its own: {both} together give {in_hertz(combined.two_coefficients)}"
+    becomes = ""
+    if combined.exact_constants is not None and combined.two_coefficients is not None:
+        becomes = f", {in_hertz(combined.exact_constants)} becomes {in_hertz(combined.two_coefficients)}"
     return Cause(
         cause="interaction",
         quantity=edge.quantity,
         effect=effect,
         where=f"poles at {first} and {second}",
-        says=f"the {thing} {how} (σ = {combined.sigma:.2g}): the poles are at {first} and {second}",
+        says=f"the {thing} {how} (σ = {combined.sigma:.2g}): the poles are at {first} and {second}{becomes}",
         instead=instead,
         numbers=(
             NamedNumber("σ", combined.sigma, ""),

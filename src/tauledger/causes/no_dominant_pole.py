@@ -42,7 +42,11 @@ def _no_dominant_pole(edge: EdgeEvidence) -> Cause | None:
     lead = "no pole dominates" if _ratio(first, second) < DOMINATES else "the poles beyond the first count too"
     off = f"{abs(100 * effect):.2g} % {'low' if effect < 0 else 'high'}"
     instead = "solve the quadratic"
-    if combined.two_coefficients is not None:
+    if combined.two_coefficients is not None and _ratio(combined.two_coefficients, edge.hz) >= _ratio(
+        combined.sum_of_constants, edge.hz
+    ):
+        instead = "find the -3 dB frequency from all poles together"
+    elif combined.two_coefficients is not None:
         instead = f"take both coefficients, not only the sum: they give {in_hertz(combined.two_coefficients)}"
     return Cause(
         cause="no-dominant-pole",

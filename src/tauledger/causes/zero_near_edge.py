@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from tauledger.causes.cause import Cause
 from tauledger.causes.evidence import EdgeEvidence, Evidence, hertz, in_hertz, move, nearest_zero
-from tauledger.hand.estimate import LowerRow
+from tauledger.hand.lower import nearest_zero_owner
 from tauledger.record import NamedNumber
 
 SQUARES_GOOD_WITHIN = 0.05
@@ -23,7 +23,8 @@ def zero_near_upper_edge(evidence: Evidence) -> Cause | None:
         quantity="f_H",
         effect=effect,
         where=f"zero at {at}",
-        says=f"a zero at {at} in the {side} half plane keeps |H| from falling{turns}; no time constant shows it",
+        says=f"a zero at {at} in the {side} half plane keeps |H| from falling{turns}; "
+        f"no time constant shows it{_moved(evidence.upper)}",
         instead=_squares(evidence.upper, "1/√(Σ1/p² − 2·Σ1/z²)"),
         numbers=(NamedNumber("zero", hertz(zero), "Hz"),),
     )
@@ -36,18 +37,28 @@ def zero_near_lower_edge(evidence: Evidence) -> Cause | None:
     if effect is None or zero is None or edge.combined is None:
         return None
     at = in_hertz(hertz(zero))
-    owner = _owner(evidence.capacitors, hertz(zero))
+    owner = nearest_zero_owner(evidence.bands, evidence.capacitors, edge.combined)
     total = edge.combined.sum_of_constants
-    high = "" if total is None else f": the bypass zero makes the short-circuit sum, {in_hertz(total)}, too high"
+    high = ""
+    if total is not None and edge.hz is not None and total > edge.hz:
+        high = f": it makes the short-circuit sum, {in_hertz(total)}, too high"
     return Cause(
         cause="zero-near-edge",
         quantity="f_L",
         effect=effect,
         where=f"zero at {at}" if owner is None else f"{owner.title}, zero at {at}",
-        says=f"{'a bypass capacitor' if owner is None else owner.title} has its zero at {at}, not at DC{high}",
+        says=f"{'a capacitor' if owner is None else owner.title} has its zero at {at}, not at DC{high}{_moved(edge)}",
         instead=_squares(edge, "√(Σp² − 2·Σz²)"),
         numbers=(NamedNumber("zero", hertz(zero), "Hz"),),
     )
+
+
+def _moved(edge: EdgeEvidence) -> str:
+    """Say both ends of the move that the effect is: the edge of the poles alone, and that with the zeros."""
+    combined = edge.combined
+    if combined is None or combined.all_poles is None or combined.with_zeros is None:
+        return ""
+    return f"; the poles alone give {in_hertz(combined.all_poles)}, with the zeros {in_hertz(combined.with_zeros)}"
 
 
 def _squares(edge: EdgeEvidence, formula: str) -> str:
@@ -55,8 +66,3 @@ def _squares(edge: EdgeEvidence, formula: str) -> str:
     if squares is not None and edge.hz is not None and abs(squares / edge.hz - 1.0) <= SQUARES_GOOD_WITHIN:
         return f"keep the zero: {formula} gives {in_hertz(squares)}"
     return "keep the zero and find the -3 dB frequency from poles and zeros together"
-
-
-def _owner(capacitors: tuple[LowerRow, ...], zero_hz: float) -> LowerRow | None:
-    near = [row for row in capacitors if row.in_path and row.zero_hz > 0 and abs(row.zero_hz / zero_hz - 1.0) < 0.2]
-    return min(near, key=lambda row: abs(row.zero_hz - zero_hz), default=None)

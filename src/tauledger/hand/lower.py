@@ -7,25 +7,29 @@ Circuits, 5th ed., 2009, sec. 7.4.
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 
 import numpy as np
 from msgspec.structs import replace
 
 from tauledger.circuit import GROUND
 from tauledger.devices.family import Device
+from tauledger.errors import NetworkError
 from tauledger.hand.budget import resistance_across
+from tauledger.hand.combine import Combined
 from tauledger.hand.equivalent import EquivalentCircuit, equivalent_circuit, joined, joined_nodes
 from tauledger.hand.estimate import LookingIn, LowerRow
 from tauledger.hand.figures import plain
 from tauledger.hand.nodes import node_name, node_title
 from tauledger.network.bands import Bands
 from tauledger.network.lower import ShortConstant, short_constants
+from tauledger.network.shares import zero_shares
 from tauledger.network.solve import response
 from tauledger.quantity import engineering
 
 WEIGHT_IN_PATH = 0.05
 EDGE_IN_PATH = 0.02
+OWNS = 0.5
 BLOCKS = 1e-6
 ACCEPTED = 0.01
 
@@ -64,6 +68,23 @@ def lower_rows(bands: Bands, devices: tuple[Device, ...]) -> tuple[LowerRow, ...
     scale = sum(abs(weight * row.edge_exact_hz) for row, weight in found)
     scale += sum(abs(constant.weight * constant.edge_hz) for constant in setting)
     return (*(_judged(row, weight, scale) for row, weight in found), *map(_gain_row, setting))
+
+
+def zero_owner(bands: Bands, rows: Sequence[LowerRow], zero: complex) -> LowerRow | None:
+    """Give the row whose capacitors a zero (rad/s) of the lower network depends on by half or more, else None."""
+    try:
+        shares = zero_shares(bands.lower, zero)
+    except NetworkError:
+        return None
+    held = {row: math.fsum(shares.get(name, 0.0) for name in row.parts) for row in rows if row.in_path}
+    owner = max(held, key=lambda row: held[row], default=None)
+    return owner if owner is not None and held[owner] >= OWNS else None
+
+
+def nearest_zero_owner(bands: Bands, rows: Sequence[LowerRow], combined: Combined) -> LowerRow | None:
+    """Give the owner of the highest visible zero of the lower network, the one nearest mid-band."""
+    zeros = combined.roots.zeros[combined.roots.zeros != 0]
+    return zero_owner(bands, rows, complex(zeros[np.argmax(np.abs(zeros))])) if len(zeros) else None
 
 
 def _row(
@@ -149,12 +170,17 @@ def _title(
 ) -> str:
     """Say "C2, bypass at emitter of Q1 (e)", "C1, coupling into base of Q1 (b)": into the end that rests when open.
 
+    A capacitor between two live nodes that signal passes without it, as in series with a feedback resistor, is neither.
+
     Where other shorts join the capacitor with a better known node, its own node is named: it is soldered there.
     """
     live = [node for node in ends if node != GROUND]
     still = min(live, key=lambda node: abs(circuit.voltage[circuit.row[node]]))
     own = [node for node in bands.network.part(names[0]).nodes if circuit.at[node] == still]
     title = node_title(circuit, still) if node_name(circuit, still) in own or not own else f"node {own[0]}"
+    if len(live) == 2 and passed != 0.0:
+        far = next(node for node in live if node != still)
+        return f"{' ‖ '.join(names)}, between {node_title(circuit, far)} and {title}"
     return f"{' ‖ '.join(names)}, {'coupling into' if passed == 0.0 else 'bypass at'} {title}"
 
 

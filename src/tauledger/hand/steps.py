@@ -59,12 +59,17 @@ def upper_steps(
 
 
 def lower_steps(
-    rows: Sequence[LowerRow], combined: Combined, *, full_hz: float | None, stable: bool = True
+    rows: Sequence[LowerRow],
+    combined: Combined,
+    *,
+    full_hz: float | None,
+    stable: bool = True,
+    zero_owner: LowerRow | None = None,
 ) -> tuple[StepEstimate, ...]:
     """Give the steps from the capacitor with the highest edge alone to f_L of the full network.
 
     combined: of `combine_lower` with the same rows. full_hz: f_L of the full network, None where there is none.
-    stable: no pole of the full network lies in the right half plane.
+    stable: no pole of the full network lies in the right half plane. zero_owner: whose is the zero nearest the edge.
     Empty where the network is unstable or no pole lies between input and output.
     The step two-coefficients is left out where it leads away from where all poles lead back.
     """
@@ -77,7 +82,8 @@ def lower_steps(
         "exact-constants": _exact_capacitors(used),
         "two-coefficients": _interaction(combined, "capacitor"),
         "all-poles": _more_poles(combined, "capacitor", "third and lower poles"),
-        "zeros": _zeros(combined, nearest=max, levels="the zero at {} ends the fall") + _zero_owner(used, combined),
+        "zeros": _zeros(combined, nearest=max, levels="the zero at {} ends the fall")
+        + ("" if zero_owner is None or combined.with_zeros is None else f" ({zero_owner.title})"),
         "full": "load and device capacitances are real: mid-band is not flat",
     }
     return _walk("f_low", combined, reasons, full_hz)
@@ -253,17 +259,6 @@ def _zeros(combined: Combined, *, nearest: Callable[[Sequence[float]], float], l
     if at.imag:
         return f"pair of zeros at {where}{side}"
     return f"zero at {where}{side}"
-
-
-def _zero_owner(rows: list[LowerRow], combined: Combined) -> str:
-    zeros = combined.roots.zeros[combined.roots.zeros != 0]
-    if len(zeros) == 0:
-        return ""
-    highest = float(np.abs(zeros).max()) / (2 * math.pi)
-    owner = min((row for row in rows if row.zero_hz > 0), key=lambda row: abs(row.zero_hz - highest), default=None)
-    if owner is None or abs(owner.zero_hz / highest - 1) > 0.2:
-        return ""
-    return f" ({owner.title})"
 
 
 def _frequencies(poles: Iterable[complex]) -> list[str]:

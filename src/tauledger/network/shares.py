@@ -42,6 +42,19 @@ class Shares(Struct, frozen=True):
     per_farad: Mapping[str, float]
 
 
+def zero_shares(network: Network, zero: complex) -> dict[str, float]:
+    """Give −∂ln z/∂ln value by part name, the real part, for a zero z (rad/s) of the network's response.
+
+    By the adjoint: H(z) = 0 stays so under a change, hence ∂z/∂ln C = −z·m/Σm with m = value·(λᵀ out)(controlᵀ x);
+    the shares add to 1. Without parts where the zero lies on a pole.
+    Raises NetworkError where the network has no unique solution at z.
+    """
+    at, terms = solve(network, np.array([zero])), reactances(network)
+    moment = terms.value * (at.adjoint[0] @ terms.out) * (at.x[0] @ terms.control)
+    whole = complex(moment.sum())
+    return by_part(terms, (moment / whole).real) if whole else {}
+
+
 def find_shares(network: Network, midband: MidBand, edge_hz: float, class_of: Mapping[str, BandClass]) -> Shares:
     """Give every part's and every node's share in the band edge at edge_hz.
 
