@@ -144,6 +144,8 @@ class Element(Struct, frozen=True):
     POLY(n) the output pair, then n control pairs. model: name of the model or empty. parameters: (name, value) pairs in
     SI units, names folded; a V or I source has dc, acmag, acphase (degrees).
     references: flat names of the elements that it depends on (F, H, W: voltage sources; K: the inductors).
+    R, C and L that are no plain values have value (where there is one), their keywords, model or formula; E F G H have
+    gain, K coupling, T z0 and td; m is left where it is not worked into these.
     polynomial: coefficients of POLY, in the order of the card. formula: of a B source or a behavioural element, with
     `quantity` what it gives: v, i, r, c, l or q.
     """

@@ -1,9 +1,18 @@
 """The netlist room: text in, circuit out.
 
-`read` takes the files, `elaborate` gives the flat circuit under a Change. In between: lines (comments, continuations),
-cards and expressions (the Lark grammars of grammar/), structure (subcircuits, what is read past), scopes (parameters),
-elements, sources and models (what places and keywords mean), flatten, ports (drive and output), hints. Messages are
-made in diagnostics. Only reader touches files; no text of a netlist leaves this room except names.
+`read` takes the files, `elaborate` gives the flat circuit under a Change. On the way:
+
+reader, sections, lines, runs    files → logical cards; plain R, C, L lines stay together as runs
+structure                        cards → subcircuits, hints, what is read past
+cards, assignments               the items of a card: grammar/card.lark, and a fast way for plain words
+expressions, behaviour           the two dialects of formulas: numbers before the run, formulas of the circuit
+scopes, conditions               parameters and functions, `.if`
+elements, passive, sources, controlled, models, bins, letters    what places and keywords mean
+flatten, bulk, instances, lookup, surroundings, references, draft    instances → the flat circuit
+ports, hints                     drive and output
+writer, hierarchy, origin, settings    the flat deck, the tree, where a value came from, NAME=VALUE
+
+Messages are made in diagnostics. Only reader touches files; no text of a netlist leaves this room except names.
 """
 
 from tauledger.netlist.elaborate import elaborate, instance_context

@@ -7,7 +7,7 @@ from msgspec.structs import replace
 from tauledger import circuit
 from tauledger.circuit import Element, Instance, ReadingNote, fold
 from tauledger.devices.catalogue import choose, families_of
-from tauledger.devices.family import Refusal, never_refused
+from tauledger.devices.family import Refusal
 from tauledger.errors import Diagnostic, InputError, NetlistError
 from tauledger.netlist.assignments import ALL
 from tauledger.netlist.behaviour import MOST_DEEP, MOST_PARTS, extent, formula_of
@@ -160,9 +160,6 @@ def _element(
         message = f"a {family.words} has at most {len(family.terminals)} nodes"
         hint = f"write {card.name.text} {' '.join(family.terminals)} model"
         draft.refusals.extend(site.fault(part.nodes[len(family.terminals)], message, hint).diagnostics)
-    elif (element.formula is not None or element.polynomial) and family.refuse is never_refused:
-        message = f"a {family.words} given by a formula is not supported by this version"
-        draft.refusals.extend(site.fault(card.name, message, READ_ONLY).diagnostics)
 
 
 def _source(site: Site, items: tuple[Item, ...], letter: str, scope: Scope) -> ElementCard:

@@ -6,8 +6,8 @@ from tauledger.record import MovedFigure, Review
 from tauledger.report.layout import HEADING, Block, Prose, Row, Section, Table
 from tauledger.report.wording import NO_NUMBER, move, number
 
-# Less than this is below what ngspice and the network agree to.
-_STANDS_STILL = 1e-7
+# Simulated edges are refined to this.
+_STANDS_STILL = 1e-6
 
 
 def changed(review: Review) -> Section:
