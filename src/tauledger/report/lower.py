@@ -32,11 +32,15 @@ def lower_edge(review: Review, *, verbose: bool = False) -> Section:
     aside = [part_title(part.name, part.owner) for part in short if not part.in_path and review.budget.lower]
     if aside:
         remarks.append(f"{', '.join(aside)} not in the signal path")
-    for word, says in (("gain", "sets the mid-band gain"), ("tuned", "resonates, neither short nor open")):
-        named = [part_title(part.name, part.owner) for part in review.parts if part.klass == word]
+    # Coupled inductors resonate with nothing; a note speaks of them.
+    tied = {
+        ends for part in review.parts if part.kind == "mutual inductance" for ends in (part.nodes[:2], part.nodes[2:])
+    }
+    loose = [part for part in review.parts if part.kind != "mutual inductance" and part.nodes not in tied]
+    for word, verb, rest in (("gain", "set", " the mid-band gain"), ("tuned", "resonate", ", neither short nor open")):
+        named = [part_title(part.name, part.owner) for part in loose if part.klass == word]
         if named:
-            verb, _, rest = says.partition(" ")
-            remarks.append(f"{', '.join(named)} {verb if len(named) == 1 else verb[:-1]} {rest}")
+            remarks.append(f"{', '.join(named)} {verb}{'s' if len(named) == 1 else ''}{rest}")
     remarks += [f"10 % less of {group[0].name} alone" for group in rows if len(group) > 1]
     if any(group[0].resistance_hand_ohm is None for group in rows):
         remarks.append(f"{SOLVED} exact: no hand rule fits")
