@@ -21,6 +21,8 @@ _IN_SHORT = {
     "full": "the whole network",
 }
 _CLASSICAL = "sum of time constants"
+_NOT_BY_HAND = ("all poles", "exact", "simulated")
+_OF_USE = 0.10
 
 
 class _Told(Struct, frozen=True):
@@ -67,10 +69,18 @@ def methods(review: Review, edge: str) -> str:
         ),
         key=lambda estimate: estimate.recommended,
     )
-    return "; ".join(
+    by_hand = [
+        abs(estimate.difference)
+        for estimate in review.estimates
+        if estimate.edge == edge and estimate.method not in _NOT_BY_HAND and estimate.difference is not None
+    ]
+    said = [
         f"{'recommended: ' if estimate.recommended else ''}{estimate.method} {move(estimate.difference)}"
         for estimate in told
-    )
+    ]
+    if by_hand and min(by_hand) > _OF_USE:
+        said.append("no method by hand comes within 10 %")
+    return "; ".join(said)
 
 
 def methods_table(review: Review, edge: str) -> Section:
