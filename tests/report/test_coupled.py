@@ -1,0 +1,49 @@
+"""Coupled inductors are told as coupled; a tuned circuit beside them resonates."""
+
+from __future__ import annotations
+
+from tauledger.circuit import Port
+from tauledger.devices.parts import (
+    Part,
+    capacitance,
+    inductance,
+    mutual_inductances,
+    resistance,
+    transconductance,
+    voltage_source,
+)
+from tauledger.network.assemble import Network
+from tauledger.pipeline import review_network
+from tauledger.report.terminal import render
+
+
+def words(*parts: Part) -> str:
+    drive = voltage_source("VS", "in", "0", 1.0)
+    review = review_network(Network.from_parts([drive, *parts], output=Port("out")))
+    return " ".join(render(review, color=False, unicode=True).split())
+
+
+def test_a_transformer_is_coupled_and_does_not_resonate() -> None:
+    said = words(
+        resistance("RS", "in", "p", 50.0),
+        inductance("L1", "p", "0", 1e-3),
+        inductance("L2", "out", "0", 4e-3),
+        *mutual_inductances("K1", "L1", "L2", ("p", "0", "out", "0"), 1.96e-3),
+        resistance("RL", "out", "0", 300.0),
+        capacitance("CL", "out", "0", 30e-12),
+    )
+    assert "L1, L2 are coupled" in said
+    assert "resonate" not in said
+    assert "resonance" not in said
+
+
+def test_a_tank_resonates() -> None:
+    said = words(
+        transconductance("G1", ("out", "0"), ("in", "0"), 1e-3),
+        resistance("RL", "out", "0", 50e3),
+        inductance("LT", "out", "0", 1e-3),
+        capacitance("CT", "out", "0", 1e-9),
+    )
+    assert "LT" in said
+    assert "resonance" in said
+    assert "coupled" not in said
