@@ -9,8 +9,8 @@ from typing import TYPE_CHECKING
 
 import click
 
-from tauledger.commands.console import writable, write
-from tauledger.errors import ExitCode, InputError, TauledgerError
+from tauledger.commands.console import print_bytes, writable, write
+from tauledger.errors import ExitCode, InputError, NetlistError, TauledgerError
 from tauledger.report.progress import progress
 
 if TYPE_CHECKING:
@@ -78,7 +78,7 @@ def review_each(
                 if folder is not None:
                     write_report(folder / file, found, tell)
         except TauledgerError as error:
-            click.echo(str(error), err=True)
+            click.echo(str(error) if isinstance(error, NetlistError) else f"tauledger: {error}", err=True)
             entries.append(Entry(netlist, file, None, str(error)))
             worst = max(worst, error.exit_code)
             continue
@@ -87,7 +87,7 @@ def review_each(
         if folder is None:
             show(found)
         else:
-            click.echo(f"{netlist}: {folder / file}")
+            _say(f"{netlist}: {folder / file}")
     if folder is not None:
         _write_index(folder, entries)
     return worst
@@ -97,7 +97,11 @@ def _write_index(folder: Path, entries: Sequence[Entry]) -> None:
     from tauledger.report.index import INDEX, to_index
 
     write(OPTION, folder / INDEX, to_index(entries))
-    click.echo(f"index: {folder / INDEX}")
+    _say(f"index: {folder / INDEX}")
+
+
+def _say(line: str) -> None:
+    print_bytes(f"{line}\n".encode(sys.stdout.encoding, errors="backslashreplace"))
 
 
 def _document(suffix: str, found: Review, tell: Callable[[str], None]) -> bytes:
