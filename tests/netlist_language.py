@@ -195,4 +195,19 @@ R3 c d 1k
 R4 a b 0 m=2
 R5 b 0 1
 """,
+    "shunts at every node": """shunts
+.options rshunt=1e9 cshunt=10p
+VCC vcc 0 12
+VIN in 0 AC 1
+C1 in b 220n
+R1 vcc b 470k
+X1 b out vcc stage
+R2 b 0 120k
+.subckt stage b c vcc
+R3 vcc c 39k
+R4 e 0 15k
+Q1 c b e nsmall
+.ends
+.model nsmall npn (is=6e-15 bf=220 vaf=85 cje=9p cjc=3.6p tf=350p)
+""",
 }

@@ -10,7 +10,7 @@ from typing import Literal
 
 from msgspec import Struct
 
-from tauledger.circuit import ADDED, GROUND, NO_CHANGE, Change, Circuit, Port, fold
+from tauledger.circuit import ADDED, GROUND, NO_CHANGE, Change, Circuit, Port, ReadingNote, fold
 from tauledger.errors import Diagnostic, InputError, NetlistError
 from tauledger.netlist.conditions import counts, define_all
 from tauledger.netlist.diagnostics import Site, gather, nearest, visible
@@ -87,6 +87,7 @@ def elaborated(
         seen=[],
     )
     flatten(netlist, draft, top, faults)
+    _add_shunts(netlist, draft, scope, settings)
     faults.extend(draft.refusals if purpose == "review" else [])
     if faults:
         raise gather(faults, netlist.files)
@@ -160,8 +161,8 @@ def _settings(netlist: Netlist, change: Change, scope: Scope, faults: list[Diagn
                 values[name] = plain_value(site, setting.value, scope)
                 if name == "gmin" and not values[name] >= 0.0:
                     raise site.fault(setting.value, "gmin must be 0 or more")
-                if name == "scale" and not values[name] > 0.0:
-                    raise site.fault(setting.value, "scale must be greater than 0")
+                if name in ("scale", "rshunt", "cshunt") and not values[name] > 0.0:
+                    raise site.fault(setting.value, f"{name} must be greater than 0")
                 if name in ("temp", "tnom"):
                     _check_temperature(site, setting.value, values[name])
             except NetlistError as error:
@@ -209,6 +210,19 @@ def _currents(draft: Draft) -> dict[str, Port]:
     }
     found |= {name: Port(draft.nodes[a], draft.nodes[b]) for name, a, b in inductors(draft)}
     return found
+
+
+def _add_shunts(netlist: Netlist, draft: Draft, scope: Scope, settings: dict[str, float]) -> None:
+    """Put what `.options rshunt` and cshunt ask for from every node to ground, as elements with names of their own."""
+    for option, kind, words, unit in (("rshunt", "R", "a resistor", "Ω"), ("cshunt", "C", "a capacitor", "F")):
+        if option not in settings:
+            continue
+        for number, node in enumerate(draft.nodes[1:], 1):
+            draft.rows.append(Row(kind, f"{kind}shunt.{node}", number, 0, settings[option], ADDED, 0))
+        says = f"{words} of {settings[option]:.6g} {unit} stands from every node to ground: {kind}shunt.<node>"
+        sites = (Site(netlist.files, netlist.cards[number]) for number in netlist.options)
+        where = next(site.where for site in sites if option in site.card.text.lower())
+        scope.notes.append(ReadingNote(where, says))
 
 
 def _add_loads(draft: Draft, change: Change, currents: dict[str, Port]) -> None:

@@ -8,11 +8,9 @@ from tauledger.netlist.items import Group, Item, Setting, Value, Word
 from tauledger.netlist.numbers import read_number
 from tauledger.netlist.scopes import Scope, number_of
 
-EFFECTIVE = frozenset({"temp", "tnom", "gmin", "scale"})
+EFFECTIVE = frozenset({"temp", "tnom", "gmin", "scale", "rshunt", "cshunt"})
 
 REFUSED = {
-    "rshunt": "it puts a resistor from every node to ground",
-    "cshunt": "it puts a capacitor from every node to ground",
     "rseries": "it puts a resistor in series with every inductor",
     "defl": "it gives transistors their length",
     "defw": "it gives transistors their width",
