@@ -90,6 +90,14 @@ def test_several_netlists_get_a_page_each_and_an_index(run: Run) -> None:
     assert "580.7" in words(root)
 
 
+def test_names_that_are_no_text_are_shown_and_linked(run: Run) -> None:
+    code, _, err = run("caf\udce9 <1>&.cir", "--report", "out/")
+    assert (code, err) == (ExitCode.OK, "")
+    (link,) = parse(Path("out/index.html").read_bytes()).iter(f"{HTML}a")
+    assert link.get("href") == "caf%E9%20%3C1%3E%26.html"
+    assert Path("out/caf\udce9 <1>&.html").is_file()
+
+
 def test_one_that_fails_does_not_keep_the_others_from_being_reviewed(run: Run) -> None:
     code, _, err = run("a.cir", "broken.cir", "c.cir", "--report", "out/")
     assert code == ExitCode.ENGINE_FAILED

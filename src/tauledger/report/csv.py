@@ -39,7 +39,7 @@ def to_csv(review: Review) -> bytes:
     for table, content in msgspec.to_builtins(review).items():
         if table not in LEFT_OUT:
             writer.writerows(_rows(table, "", content))
-    return page.getvalue().encode()
+    return page.getvalue().encode(errors="backslashreplace")
 
 
 def _rows(table: str, name: str, content: Any) -> Iterator[tuple[str, ...]]:

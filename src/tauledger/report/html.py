@@ -58,7 +58,8 @@ def to_html(review: Review, *, tell: Callable[[str], None] = lambda _: None) -> 
         script=read("page.js"),
         kind=lambda block: type(block).__name__,
     )
-    return text.encode()
+    # A path may hold bytes that are no text; they are shown as such.
+    return text.encode(errors="backslashreplace")
 
 
 def template(name: str) -> Template:

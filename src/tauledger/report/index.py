@@ -2,8 +2,10 @@
 
 from __future__ import annotations
 
+import os
 from collections.abc import Sequence
 from pathlib import PurePath
+from urllib.parse import quote
 
 from msgspec import Struct
 
@@ -27,7 +29,7 @@ class Listed(Struct, frozen=True):
     """One row of the page."""
 
     path: str
-    file: str
+    link: str
     title: str
     headline: str
     figures: tuple[tuple[str, str, str], ...]
@@ -51,12 +53,21 @@ def file_names(paths: Sequence[str]) -> tuple[str, ...]:
 
 def to_index(entries: Sequence[Entry]) -> bytes:
     """Give the page that lists the reports, in UTF-8."""
-    return template("index.html.j2").render(entries=tuple(map(_listed, entries)), style=style()).encode()
+    return (
+        template("index.html.j2")
+        .render(entries=tuple(map(_listed, entries)), style=style())
+        .encode(errors="backslashreplace")
+    )
+
+
+def _link(file: str) -> str:
+    """Write a file name for a link, whatever bytes it holds."""
+    return quote(os.fsencode(file))
 
 
 def _listed(entry: Entry) -> Listed:
     if entry.review is None:
-        return Listed(entry.path, entry.file, "", "", (), entry.failure)
+        return Listed(entry.path, _link(entry.file), "", "", (), entry.failure)
     figures = tuple((figure.label, figure.value, figure.beside) for figure in key_figures(entry.review))
     title = entry.review.netlist.title or "(no title)"
-    return Listed(entry.path, entry.file, title, headline(entry.review), figures, "")
+    return Listed(entry.path, _link(entry.file), title, headline(entry.review), figures, "")

@@ -40,7 +40,7 @@ def to_markdown(review: Review) -> bytes:
     lines += ["<details><summary>Terms</summary>", ""]
     lines += [f"- **{escape(term)}**: {escape(says)}" for term, says in TERMS.items()]
     lines += ["", "</details>"]
-    return ("\n".join(lines) + "\n").encode()
+    return ("\n".join(lines) + "\n").encode(errors="backslashreplace")
 
 
 def escape(text: str) -> str:
