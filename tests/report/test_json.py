@@ -75,3 +75,8 @@ def test_what_is_not_finite_becomes_null() -> None:
     agreement = replace(ECHO_PREAMP.agreement, max_relative_error=math.nan, at_hz=math.inf)
     told = document(replace(ECHO_PREAMP, agreement=agreement))["agreement"]
     assert told == {"max_relative_error": None, "at_hz": None, "points": 261}
+
+
+def test_a_path_that_is_no_text_is_shown_as_its_bytes() -> None:
+    netlist = replace(ECHO_PREAMP.netlist, path="caf\udce9.cir")
+    assert document(replace(ECHO_PREAMP, netlist=netlist))["netlist"]["path"] == "caf\\udce9.cir"

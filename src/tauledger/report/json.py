@@ -37,9 +37,12 @@ def schema_text() -> str:
 
 
 def finite(value: Any) -> Any:
-    """Put null in the place of numbers that are not finite, which JSON does not have."""
+    """Put what JSON has in the place of what it has not: null for numbers that are not finite, `\\udce9` for a byte."""
     if isinstance(value, float):
         return value if math.isfinite(value) else None
+    if isinstance(value, str):
+        # A path may hold bytes that are no text; JSON has no way to say so but as they are shown.
+        return value.encode(errors="backslashreplace").decode()
     if isinstance(value, dict):
         return {name: finite(entry) for name, entry in value.items()}
     if isinstance(value, list | tuple):
