@@ -131,3 +131,19 @@ def test_dominant_pole_before_a_pair_gets_the_sum_alone() -> None:
 def test_no_hand_side_no_formulas() -> None:
     poles = np.array([-1.0, -5.0], dtype=complex)
     assert {pole.formula for pole in hand_poles(poles, poles[:0], midband_hz=0.0, upper=None, lower=None)} == {""}
+
+
+def test_a_formula_that_misses_by_a_fifth_is_given_for_the_dominant_pole_alone_and_says_so() -> None:
+    """1/b1 of 1 and 2 ± 2j (in units of 1): b1 = 1.5, a third low; for poles that it cannot hold there is none."""
+    poles = np.array([-1.0, -2 + 2j, -2 - 2j], dtype=complex)
+    first, pair = hand_poles(poles, poles[:0], midband_hz=0.0, upper=coefficients(poles), lower=None)
+    assert 2 * math.pi * hz(first) == pytest.approx(1 / 1.5)
+    assert first.formula == "1/(2π·b1), -33 % off"
+    assert pair.hz is None
+
+
+@pytest.mark.parametrize("board", [*boards.UPPER], ids=lambda board: board.__name__)
+def test_no_pole_has_a_formula_that_is_nonsense_without_saying_so(board: boards.Board) -> None:
+    for told in above(board()):
+        if told.hz is not None and not told.formula.endswith("off"):
+            assert 2 * math.pi * told.hz == pytest.approx(abs(told.pole), rel=0.2)

@@ -63,8 +63,8 @@ def gain_falls_first(evidence: Evidence) -> Cause | None:
         effect=effect,
         where=worst.row.title,
         says=f"{part} counts {_times(worst.term.factor)} times at {worst.row.title}, a pole at "
-        f"{in_hertz(worst.hand_hz)} by hand; there the gain has fallen and it counts only {worst.factor:.2g} times: "
-        f"the second pole is at {in_hertz(hertz(poles[1]))}",
+        f"{in_hertz(worst.hand_hz)} by hand; there the gain has fallen and it counts only "
+        f"{_times(worst.factor, 2)} times: the second pole is at {in_hertz(hertz(poles[1]))}",
         instead=f"take both poles from b1 and b2 (1/b1 and b1/b2), not one pole per node{_moved(combined)}",
         numbers=(
             NamedNumber("Miller factor at mid-band", worst.term.factor, ""),
@@ -75,8 +75,8 @@ def gain_falls_first(evidence: Evidence) -> Cause | None:
     )
 
 
-def _times(factor: float) -> str:
-    return f"{factor:.3g}" if factor < 1e3 else f"{factor:,.0f}"
+def _times(factor: float, digits: int = 3) -> str:
+    return f"{factor:.{digits}g}" if factor < 10**digits else f"{factor:,.0f}"
 
 
 def _moved(combined: Combined) -> str:

@@ -35,7 +35,7 @@ def _interaction(edge: EdgeEvidence) -> Cause | None:
     poles, combined = outward(edge), edge.combined
     if effect is None or combined is None or combined.sigma is None or combined.hidden or len(poles) < 2:
         return None
-    first, second = in_hertz(hertz(poles[0])), in_hertz(hertz(poles[1]))
+    first, second = (f"{'a pair at ' if pole.imag else ''}{in_hertz(hertz(pole))}" for pole in poles[:2])
     splits = combined.sigma < SPLITTING
     how = "load each other and push their poles apart" if splits else "act on each other"
     thing = "capacitances" if edge.edge == "f_high" else "coupling and bypass capacitors"

@@ -14,12 +14,15 @@ import math
 
 import numpy as np
 from msgspec import Struct
+from msgspec.structs import replace
 
 from tauledger.hand.combine import Coefficients, Complex
+from tauledger.quantity import percent
 
 # Two real poles are told apart by 1/b1 and b1/b2 from b1²/b2 > 10 on (a ratio of 8); below, the quadratic is solved.
 SEPARATED = 10.0
 THIRD_FAR = 4.0
+MISSES = 0.2
 
 
 class HandPole(Struct, frozen=True):
@@ -53,13 +56,28 @@ def hand_poles(
     edge = 2 * math.pi * midband_hz
     above = sorted((pole for pole in seen if abs(pole) > edge), key=abs)
     below = sorted((pole for pole in seen if abs(pole) <= edge), key=abs, reverse=True)
-    told = {**_upper(above, upper), **_lower(below, lower)}
+    told = {
+        **_kept(above[:1], _upper(above, upper)),
+        **_kept(below[:1], _lower(below, lower)),
+    }
     return tuple(told.get(complex(pole), HandPole(complex(pole), None, "")) for pole in poles if pole.imag >= 0)
 
 
 def pair_frequency_and_q(pole: complex) -> tuple[float, float]:
     """Give f0 = |p|/2π in Hz and Q = |p| / (−2·Re p) of the pair that `pole` (rad/s) belongs to."""
     return abs(pole) / (2 * math.pi), abs(pole) / (-2 * pole.real) if pole.real else math.inf
+
+
+def _kept(dominant: list[complex], told: dict[complex, HandPole]) -> dict[complex, HandPole]:
+    """Leave out a formula that misses its pole by more than 20 %; the dominant one keeps it, with how far it is off."""
+    kept: dict[complex, HandPole] = {}
+    for pole, by_hand in told.items():
+        off = 0.0 if by_hand.hz is None else by_hand.hz * 2 * math.pi / abs(pole) - 1.0
+        if abs(off) <= MISSES:
+            kept[pole] = by_hand
+        elif pole in dominant:
+            kept[pole] = replace(by_hand, formula=f"{by_hand.formula}, {percent(off)} off")
+    return kept
 
 
 def _upper(poles: list[complex], pair: Coefficients | None) -> dict[complex, HandPole]:

@@ -57,6 +57,9 @@ def stage_rows(bands: Bands, devices: tuple[Device, ...]) -> tuple[StageRow, ...
             exact = _ratio(circuit, before, node)
             solved = signal_gain if circuit.s_mid else _hand_value
             by_hand = solved(circuit, before, node)
+        if by_hand == 0.0:
+            # no element leads from the node before to this one: paper has no gain for it
+            by_hand = None
         cell = _source_cell(circuit, group, before)
         around = () if cell is None else arrangement(circuit, cell, node, before, earlier)
         role = "passive" if cell is None else role_of(circuit, cell)

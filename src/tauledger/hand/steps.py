@@ -146,7 +146,7 @@ def _lowest_node(rows: list[SignalNode]) -> str:
 
 def _other_nodes(rows: list[SignalNode]) -> str:
     others = [row for row in rows[1:] if row.time_constant_s > 0]
-    negative = [row for row in rows if row.time_constant_s <= 0]
+    negative = [row for row in rows if row.time_constant_s < 0]
     total = math.fsum(row.time_constant_s for row in rows if row.time_constant_s > 0)
     left_out = "".join(
         f"; {row.title} is left out, its time constant is {_seconds(row.time_constant_s)}" for row in negative

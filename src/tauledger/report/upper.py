@@ -26,6 +26,7 @@ _MATTERS = 0.01
 _WORTH_A_ROW = 0.02
 _NODES, _TERMS, _SHARES = 6, 4, 5
 _EQUAL = 1e-6
+_SAME_OHM = 0.005
 
 
 def upper_budget(review: Review, *, verbose: bool = False) -> Section:
@@ -135,7 +136,7 @@ def _term_rows(node: NodeRow, working: Working, titles: Mapping[str, str], *, le
         Row(
             (
                 f"  {titles.get(term.part, term.part)}{_times(term)}",
-                "",
+                _own_resistance(term, node),
                 number(term.farad * term.factor, "F"),
                 number(_seconds(term, node), "s"),
                 "",
@@ -156,6 +157,18 @@ def _seconds(term: CapacitanceTerm, node: NodeRow) -> float:
     if term.time_constant_s is not None:
         return term.time_constant_s
     return (node.resistance_hand_ohm or 0.0) * term.farad * term.factor
+
+
+def _own_resistance(term: CapacitanceTerm, node: NodeRow) -> str:
+    """Show the resistance that one capacitance faces where it is another than the row's: R·C then multiply in its line.
+
+    What hangs on the outer node faces less than what lies inside, behind a series resistance of the device.
+    """
+    farad = term.farad * term.factor
+    if term.time_constant_s is None or not farad or not node.resistance_hand_ohm:
+        return ""
+    ohm = term.time_constant_s / farad
+    return "" if abs(ohm / node.resistance_hand_ohm - 1.0) <= _SAME_OHM else number(ohm, "Ω")
 
 
 def _times(term: CapacitanceTerm) -> str:
