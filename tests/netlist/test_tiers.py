@@ -21,7 +21,7 @@ from tauledger.netlist.runs import Run
 from tauledger.netlist.writer import flat_netlist
 
 WORDS = st.text(st.sampled_from("aR1.k+-/}:;$µ*"), min_size=1, max_size=4)
-JOINTS = st.sampled_from([" ", "\t", "  ", "=", " = ", ",", "(", ")", "{", "'", '"'])
+JOINTS = st.sampled_from([" (", ") ", ")", "(", " ", "\t", "  ", "=", " = ", ",", "(", ")", "{", "'", '"'])
 
 
 @st.composite
@@ -51,11 +51,22 @@ def test_the_wide_way_takes_the_usual_cards_and_no_others() -> None:
         if found is not None:
             assert found == grammar_items(site(text), text)
             taken += 1
-    assert taken > 0.6 * len(texts)
+    assert taken > 0.7 * len(texts)
 
 
 def test_what_the_grammar_refuses_the_wide_way_refuses_too() -> None:
-    for text in ("R1 a b=", "R1 a b = 2", "R1 =a", "R1 a b=c=d", "R1 a {b", "R1 (a b) 2", "R1 a,b 2"):
+    for text in (
+        "R1 a b=",
+        "R1 a b = 2",
+        "R1 =a",
+        "R1 a b=c=d",
+        "R1 a {b",
+        "R1 (a b",
+        "R1 a)",
+        "R1 a=(b)",
+        ",",
+        "(((a)",
+    ):
         assert wide_items(text) is None
         try:
             grammar_items(site(text), text)
