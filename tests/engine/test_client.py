@@ -322,3 +322,32 @@ def test_only_the_worker_imports_pyspice() -> None:
         if "import NgSpice" in path.read_text() or "from PySpice" in path.read_text()
     )
     assert guilty == ["worker.py"]
+
+
+def test_an_interrupt_ends_the_worker_so_that_no_answer_is_taken_for_another(monkeypatch: pytest.MonkeyPatch) -> None:
+    def interrupted(*_: object) -> None:
+        raise KeyboardInterrupt
+
+    with start_engine(timeout_s=30.0) as engine:
+        engine.bias(preamp(), ())
+        monkeypatch.setattr("tauledger.engine.client.receive", interrupted)
+        with pytest.raises(KeyboardInterrupt):
+            engine.sweep([1e3])
+        monkeypatch.undo()
+        with pytest.raises(EngineError, match="the engine was ended"):
+            engine.sweep([1e3])
+
+
+def test_a_process_that_cannot_be_started_leaves_nothing_behind(
+    monkeypatch: pytest.MonkeyPatch, tmp_path: Path
+) -> None:
+    def refused(*_: object, **__: object) -> None:
+        raise OSError(11, "Resource temporarily unavailable")
+
+    before = len(list(Path("/proc/self/fd").iterdir()))
+    monkeypatch.setattr("tempfile.tempdir", str(tmp_path))
+    monkeypatch.setattr("tauledger.engine.client.subprocess.Popen", refused)
+    with pytest.raises(EngineError, match="cannot be started: Resource temporarily unavailable"):
+        start_engine()
+    assert list(tmp_path.iterdir()) == []
+    assert len(list(Path("/proc/self/fd").iterdir())) == before

@@ -45,6 +45,7 @@ def start_engine(*, library: str | None = None, timeout_s: float = 60.0) -> Engi
 
     library: path or name of the ngspice library; else $NGSPICE_LIBRARY_PATH, else the system's own.
     timeout_s: how long one request may take. A library that cannot be used shows at the first request.
+    Raises EngineError where no process can be started.
     """
     library = library or os.environ.get("NGSPICE_LIBRARY_PATH") or ""
     if os.sep in library:
@@ -55,24 +56,34 @@ def start_engine(*, library: str | None = None, timeout_s: float = 60.0) -> Engi
     request_read, request_write = os.pipe()
     reply_read, reply_write = os.pipe()
     command = [sys.executable, "-P", "-m", "tauledger.engine.worker"]
-    with (folder / LOG).open("wb") as log:
-        process = subprocess.Popen(
-            [*command, str(request_read), str(reply_write), str(folder), library],
-            stdin=subprocess.DEVNULL,
-            stdout=log,
-            stderr=log,
-            pass_fds=(request_read, reply_write),
-            cwd=folder,
-            env=_environment(folder),
-            start_new_session=True,
-        )
-    os.close(request_read)
-    os.close(reply_write)
+    try:
+        with (folder / LOG).open("wb") as log:
+            process = subprocess.Popen(
+                [*command, str(request_read), str(reply_write), str(folder), library],
+                stdin=subprocess.DEVNULL,
+                stdout=log,
+                stderr=log,
+                pass_fds=(request_read, reply_write),
+                cwd=folder,
+                env=_environment(folder),
+                start_new_session=True,
+            )
+    except OSError as error:
+        os.close(request_write)
+        os.close(reply_read)
+        shutil.rmtree(folder, ignore_errors=True)
+        raise EngineError(f"the engine's process cannot be started: {error.strerror}") from error
+    finally:
+        os.close(request_read)
+        os.close(reply_write)
     return Engine(process, request_write, reply_read, folder, library, timeout_s)
 
 
 class Engine:
-    """One worker; a context manager that ends it. `bias` loads a circuit, `sweep` answers for the one loaded."""
+    """One worker; a context manager that ends it. `bias` loads a circuit, `sweep` answers for the one loaded.
+
+    One thread at a time may ask. An interrupt while it works ends the worker.
+    """
 
     def __init__(
         self, process: subprocess.Popen[bytes], request: int, reply: int, folder: Path, library: str, timeout_s: float
@@ -307,6 +318,10 @@ class Engine:
                 f"ngspice did not answer within {self._timeout_s:g} s and was ended",
                 "allow it more time, or look for what keeps the circuit from settling",
             ) from error
+        except KeyboardInterrupt:
+            # the answer that is still to come would be read as that of the next request
+            self.close()
+            raise
         if answer is None:
             raise self._ended()
         return answer
