@@ -19,12 +19,17 @@ R1 in b {load}
 R2 b c 2k tc1=1m
 E1 d 0 b 0 10
 X1 d out cell
+X2 d out pair m=3
 R3 out 0 1k m=2
 Q1 out b 0 nsmall
 .subckt cell a y
 R1 a y {gain*100}
 D1 y 0 local
 .model local d is=1e-14
+.ends
+.subckt pair a y
+G1 a 0 y 0 2m m=2
+I1 a 0 5u AC 7u m=2
 .ends
 .model nsmall npn (bf=220)
 .temp 60
@@ -61,6 +66,8 @@ def test_a_name_is_a_parameter_an_element_or_a_parameter_of_a_model(board: Path,
         ("R3=5k", "0 1k m", "0 5k m"),
         ("E1=20", "0 10", "0 20"),
         ("VIN=2", "DC 1", "DC 2"),
+        ("X2.G1=3m", "y 0 2m", "y 0 3m"),
+        ("X2.I1=6u", "0 5u", "0 6u"),
         ("nsmall.bf=100", "bf=220", "bf=100"),
         ("nsmall.vaf=80", "bf=220", "bf=220 vaf=80"),
         ("X1:local.is=1f", "is=1e-14", "is=1e-15"),

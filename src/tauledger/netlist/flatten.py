@@ -131,8 +131,11 @@ def _element(
         part = _scaled(draft, part, letter)
         if part.model is not None and fold(part.model.text) not in seen.models:
             part = replace(part, model=picked_bin(netlist, draft, seen, part, part.model, letter, site))
+    plain = letter in PASSIVES and part.model is None and [key for key, _ in part.parameters] == ["value"]
+    if not plain:
+        part = replace(part, parameters=_own_value(draft, name, part, letter))
     part = _multiplied(around, part, letter, name, site)
-    if letter in PASSIVES and part.model is None and [key for key, _ in part.parameters] == ["value"]:
+    if plain and [key for key, _ in part.parameters] == ["value"]:
         _plain(netlist, draft, around, part, letter, name, number, site)
         return
     model = None
@@ -144,7 +147,7 @@ def _element(
         name=name,
         nodes=tuple(node_of(netlist, draft, around, node) for node in part.nodes),
         model=model.model.name if model else "",
-        parameters=_own_value(draft, name, part, letter),
+        parameters=part.parameters,
         card=number,
         path=around.path,
         references=tuple(around.prefix + word.text for word in part.references),
@@ -248,8 +251,10 @@ def _own_value(draft: Draft, name: str, part: ElementCard, letter: str) -> tuple
     if own not in dict(part.parameters):
         draft.fixed.add(key)
         return part.parameters
-    m = part.m if letter in "FG" else 1.0
-    return tuple((word, m * _changed(draft, name, value) if word == own else value) for word, value in part.parameters)
+    changed = _changed(draft, name, 0.0)
+    if own == "value" and (problem := impossible(letter, changed)):
+        raise InputError(f"{name}: {problem}")
+    return tuple((word, changed if word == own else value) for word, value in part.parameters)
 
 
 def _formula(
