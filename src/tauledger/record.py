@@ -443,6 +443,29 @@ class MovedFigure(Struct, frozen=True):
     after: float | None
 
 
+class Help(Struct, frozen=True):
+    """What 10 % less of one element does, to first order: f_high, f_low and gain as fractions of f_H, f_L and |H_mid|.
+
+    name: part, "RC", "CL", "Q1.gm", "Q1.c_mu"; a resistor by its resistance, value in `unit`. free: a card of the board
+    that leaves the operating point alone. moves_bias: it takes part in the operating point, which is held here.
+    *_rerun*: computed again with 10 % less, the operating point held; None where that was not done or there is no edge.
+    """
+
+    name: str
+    owner: str
+    nodes: tuple[str, ...]
+    value: float
+    unit: str
+    free: bool
+    moves_bias: bool
+    f_high: float | None
+    f_low: float | None
+    gain: float
+    f_high_rerun_hz: float | None = None
+    f_low_rerun_hz: float | None = None
+    gain_rerun: float | None = None
+
+
 class Review(Struct, frozen=True):
     """One review of one netlist under one condition."""
 
@@ -474,6 +497,7 @@ class Review(Struct, frozen=True):
     paper: tuple[PaperFigure, ...] = ()
     settings: tuple[SetValue, ...] = ()
     moved: tuple[MovedFigure, ...] = ()
+    helps: tuple[Help, ...] = ()
 
 
 DEVICES_SCHEMA = "tauledger.devices/1"

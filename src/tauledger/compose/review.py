@@ -6,6 +6,7 @@ import math
 
 from tauledger import __version__
 from tauledger.causes.cause import cause_facts, note_facts
+from tauledger.compose.helps import helps
 from tauledger.compose.rows import budget_facts, node_rows, part_rows, pole_facts, zero_facts
 from tauledger.compose.setting import cautions, curves, device_facts, drive_facts, output_facts, source_lines, unit_of
 from tauledger.explain import Explanation
@@ -87,6 +88,7 @@ def compose(numbers: Numbers, explanation: Explanation, *, netlist: Netlist | No
         causes=tuple(cause_facts(cause) for cause in explanation.causes),
         notes=_notes(numbers, explanation, netlist),
         cautions=cautions(numbers),
+        helps=helps(numbers),
     )
 
 

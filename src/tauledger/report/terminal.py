@@ -9,7 +9,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from tauledger.record import NodeRow, Review
-from tauledger.report import changed, lower, paper, poles, reasons, steps, summary, upper
+from tauledger.report import changed, helps, lower, paper, poles, reasons, steps, summary, upper
 from tauledger.report.layout import CAUTION, HEADING, STRONG, WARNING, Line, Section, lay_out
 from tauledger.report.working import workings
 
@@ -44,6 +44,7 @@ def render(
         steps.steps(review, "f_high"),
         steps.methods_table(review, "f_high") if verbose else Section(()),
         upper.upper_shares(review, verbose=verbose),
+        helps.what_would_help(review) if verbose else Section(()),
         lower.lower_edge(review, verbose=verbose),
         steps.steps(review, "f_low") if verbose else Section(()),
         steps.methods_table(review, "f_low") if verbose else Section(()),

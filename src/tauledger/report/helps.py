@@ -1,0 +1,51 @@
+"""What would help: what 10 % less of one element does to f_H, f_L and gain, and the proof of the largest three."""
+
+from __future__ import annotations
+
+from tauledger.record import Help, Review
+from tauledger.report.layout import Block, Prose, Row, Section, Table
+from tauledger.report.wording import move, nominal, number, part_title
+
+_BIAS, _DEVICE = "§", "¶"
+
+
+def what_would_help(review: Review) -> Section:
+    """Give first-order effects of 10 % less per element, free cards first, and the exact ones where recomputed."""
+    if not review.helps:
+        return Section(())
+    rows: list[Row] = []
+    for one in review.helps:
+        title = part_title(one.name, one.owner) + _mark(one)
+        value = nominal(one.value, one.unit) if one.name == one.owner else number(one.value, one.unit, 3)
+        rows.append(Row((title, value, move(one.f_high), move(one.f_low), move(one.gain))))
+        if one.gain_rerun is not None:
+            rows.append(
+                Row(
+                    (
+                        "  recomputed",
+                        "",
+                        move(_change(one.f_high_rerun_hz, review.f_high.exact_hz if review.f_high else None)),
+                        move(_change(one.f_low_rerun_hz, review.f_low.exact_hz if review.f_low else None)),
+                        move(one.gain_rerun),
+                    )
+                )
+            )
+    head = ("WHAT WOULD HELP: 10 % less of", "value", "f_H", "f_L", "gain")
+    blocks: list[Block] = [Table("lrrrr", head, tuple(rows))]
+    told = ["to first order, operating point held"]
+    if any(one.moves_bias for one in review.helps):
+        told.append(f"{_BIAS} takes part in the operating point, and moves it")
+    if any(not one.free and not one.moves_bias for one in review.helps):
+        told.append(f"{_DEVICE} inside a device: another device, or another bias")
+    blocks.append(Prose("; ".join(told), lead="  "))
+    return Section(tuple(blocks), major=True)
+
+
+def _mark(one: Help) -> str:
+    if one.free:
+        return ""
+    return _BIAS if one.moves_bias else _DEVICE
+
+
+def _change(hz: float | None, before: float | None) -> float | None:
+    return hz / before - 1.0 if hz is not None and before else None
