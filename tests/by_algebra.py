@@ -22,7 +22,9 @@ from tauledger.hand.lower import nearest_zero_owner
 from tauledger.hand.steps import lower_steps, upper_steps
 from tauledger.network.assemble import Network, incidence
 from tauledger.network.bands import Bands, classify, find_midband
+from tauledger.network.edges import find_edges
 from tauledger.network.midband import frequency_range
+from tauledger.network.shares import find_shares
 from tauledger.network.solve import log_slope, on_axis, response, solve
 from tauledger.network.spectrum import pole_frequencies, zero_frequencies
 
@@ -90,6 +92,14 @@ def evidence(
                 capacitors, below, full_hz=lower.hz, zero_owner=nearest_zero_owner(bands, capacitors, below)
             ),
         )
+    edges = find_edges(network, bands.midband)
+    upper, lower = replace(upper, found=edges.f_high), replace(lower, found=edges.f_low)
+    upper, lower = (
+        edge
+        if edge.found is None or edge.found.hz is None
+        else replace(edge, shares=find_shares(network, bands.midband, edge.found.hz, bands.class_of).parts)
+        for edge in (upper, lower)
+    )
     return Evidence(bands, poles, zeros, devices, nodes, capacitors, upper, lower, stepped)
 
 

@@ -97,8 +97,8 @@ def explain(numbers: Numbers) -> Explanation:
         devices=numbers.devices,
         nodes=hand.nodes if hand else (),
         capacitors=hand.lower if hand else (),
-        upper=_evidence("f_high", edges.f_high, hand, upper),
-        lower=_evidence("f_low", edges.f_low, hand, lower),
+        upper=_evidence("f_high", edges.f_high, hand, upper, shares_high),
+        lower=_evidence("f_low", edges.f_low, hand, lower, shares_low),
         stepped=numbers.bias is not None and numbers.bias.stepped,
         images=images(hand.nodes) if hand else {},
     )
@@ -198,7 +198,11 @@ def _by_hand(numbers: Numbers, constants: OpenConstants) -> tuple[HandEstimate, 
 
 
 def _evidence(
-    name: Literal["f_high", "f_low"], edge: Edge | None, hand: HandEstimate | None, combined: Combined | None
+    name: Literal["f_high", "f_low"],
+    edge: Edge | None,
+    hand: HandEstimate | None,
+    combined: Combined | None,
+    shares: Shares | None,
 ) -> EdgeEvidence:
     return EdgeEvidence(
         edge=name,
@@ -206,4 +210,6 @@ def _evidence(
         slope=edge.slope if edge else None,
         combined=combined,
         steps=tuple(step for step in hand.steps if step.edge == name) if hand else (),
+        found=edge,
+        shares=shares.parts if shares is not None else {},
     )

@@ -11,8 +11,9 @@ from by_algebra import evidence
 from tauledger.causes import notes
 from tauledger.causes.catalogue import find_notes
 from tauledger.causes.evidence import Evidence
+from tauledger.circuit import Port
 from tauledger.devices.family import Device, Terminal, Transconductor
-from tauledger.devices.parts import capacitance, inductance, mutual_inductances, resistance
+from tauledger.devices.parts import Part, capacitance, inductance, mutual_inductances, resistance, voltage_source
 from tauledger.network.assemble import Network
 
 
@@ -242,3 +243,59 @@ def test_a_right_half_plane_pole_is_unstable() -> None:
 @pytest.mark.parametrize("board", [*boards.UPPER, *boards.LOWER], ids=lambda board: board.__name__)
 def test_worked_examples_need_no_notes(board: boards.Board) -> None:
     assert ids(evidence(board())) == []
+
+
+def ladder(*parts: Part) -> Network:
+    """A voltage source VIN at node in, the parts, the output at node out."""
+    return Network.from_parts([voltage_source("VIN", "in", "0", 1.0), *parts], output=Port("out", "0", "voltage"))
+
+
+def test_a_peak_is_told_with_the_q_and_the_overshoot_of_such_a_pair() -> None:
+    """Series R, L and C with Q = √(L/C)/R = 2: |H| peaks by Q/√(1 − 1/(4Q²)), a step by exp(−π/√(4Q² − 1)) = 44 %."""
+    network = ladder(
+        resistance("R1", "in", "m", 50.0), inductance("L1", "m", "out", 1e-6), capacitance("C1", "out", "0", 1e-10)
+    )
+    note = notes.peaking_above(evidence(network, at_hz=1e3))
+    assert note is not None
+    assert note.note == "peaking"
+    assert "peaks 6.3 dB above mid-band" in note.says
+    assert "Q = 2.00" in note.says
+    assert "overshoots by 44 %" in note.says
+    assert notes.peaking_above(evidence(boards.cascode())) is None
+
+
+def test_what_comes_back_within_3_db_is_told() -> None:
+    """A series L and C across the output short it at 1 MHz; far above, nothing loads it any more."""
+    network = ladder(
+        resistance("R1", "in", "out", 1e3),
+        inductance("L1", "out", "m", 1e-3 / (2 * np.pi)),
+        capacitance("C1", "m", "0", 1e-9 / (2 * np.pi)),
+    )
+    note = notes.further_crossings_above(evidence(network, at_hz=10.0))
+    assert note is not None
+    # |X| = R on both sides: f/f0 - f0/f = ±1, the golden ratio and its inverse
+    assert note.says == "beyond f_H |H| comes back within 3 dB at 1.62 MHz: f_H is the first"
+    assert notes.further_crossings_above(evidence(boards.cascode())) is None
+
+
+def test_a_capacitor_of_which_more_raises_the_edge_is_told() -> None:
+    """C1 across the upper arm of a divider brings a zero: −∂ln f_H/∂ln C1 is negative."""
+    network = ladder(
+        resistance("RS", "in", "a", 50.0),
+        resistance("R1", "a", "out", 1e3),
+        capacitance("C1", "a", "out", 30e-12),
+        resistance("R2", "out", "0", 1e3),
+        capacitance("C2", "out", "0", 100e-12),
+    )
+    found = evidence(network)
+    note = notes.negative_share_above(found)
+    assert note is not None
+    assert (note.note, note.where) == ("negative-share", "f_H")
+    assert note.says.startswith("C1 (")
+    assert "adding capacitance there raises the edge" in note.says
+    assert found.upper.hz is not None
+    more = [replace(part, value=33e-12) if part.owner == "C1" else part for part in network.parts]
+    raised = evidence(Network.from_parts(more, output=network.port)).upper.hz
+    assert raised is not None
+    assert raised > found.upper.hz
+    assert notes.negative_share_above(evidence(boards.cascode())) is None

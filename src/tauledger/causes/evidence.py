@@ -11,9 +11,11 @@ from tauledger.causes.cause import Quantity
 from tauledger.devices.family import Device
 from tauledger.devices.parts import Part
 from tauledger.hand.combine import Combined
-from tauledger.hand.estimate import Edge, LowerRow, SignalNode, StepEstimate
+from tauledger.hand.estimate import Edge as EdgeName
+from tauledger.hand.estimate import LowerRow, SignalNode, StepEstimate
 from tauledger.hand.halves import counted
 from tauledger.network.bands import Bands
+from tauledger.network.edges import Edge
 from tauledger.network.solve import Complex
 from tauledger.quantity import engineering
 
@@ -25,14 +27,17 @@ class EdgeEvidence(Struct, frozen=True):
     """One band edge.
 
     hz: exact, None where there is none. slope: d ln|H| / d ln f there. combined, steps: None and empty where the hand
-    side is withheld.
+    side is withheld. found: the same edge with what lies around it, None where nothing happens on that side.
+    shares: −∂ln f/∂ln C by part name.
     """
 
-    edge: Edge
+    edge: EdgeName
     hz: float | None
     slope: float | None
     combined: Combined | None
     steps: tuple[StepEstimate, ...]
+    found: Edge | None = None
+    shares: Mapping[str, float] = {}
 
     @property
     def quantity(self) -> Quantity:

@@ -10,7 +10,7 @@ import math
 import numpy as np
 
 from tauledger.causes.cause import Note
-from tauledger.causes.evidence import EdgeEvidence, Evidence, in_hertz
+from tauledger.causes.evidence import EdgeEvidence, Evidence, in_hertz, in_words
 from tauledger.circuit import GROUND
 from tauledger.errors import NetworkError
 from tauledger.network.assemble import Network
@@ -18,9 +18,10 @@ from tauledger.network.midband import frequency_range
 from tauledger.network.solve import response
 from tauledger.quantity import engineering, percent
 
-SHALLOW = 0.2
 HALF_SHORT = (0.3, 0.95)
-POINTS_PER_DECADE = 60
+WORTH_A_SHARE = 0.02
+PEAKS_DB = 0.5
+TOLD = 3
 DRIVEN_TERMINALS = ("base", "gate", "emitter", "source")
 
 
@@ -116,12 +117,42 @@ def levels_off_below(evidence: Evidence) -> Note | None:
 
 def ill_conditioned_above(evidence: Evidence) -> Note | None:
     """|H| falls so slowly at f_H that small changes move it far."""
-    return _ill_conditioned(evidence, evidence.upper, upwards=True)
+    return _ill_conditioned(evidence.upper)
 
 
 def ill_conditioned_below(evidence: Evidence) -> Note | None:
     """|H| falls so slowly at f_L that small changes move it far."""
-    return _ill_conditioned(evidence, evidence.lower, upwards=False)
+    return _ill_conditioned(evidence.lower)
+
+
+def further_crossings_above(evidence: Evidence) -> Note | None:
+    """|H| comes back within 3 dB of mid-band above f_H."""
+    return _further(evidence.upper)
+
+
+def further_crossings_below(evidence: Evidence) -> Note | None:
+    """|H| comes back within 3 dB of mid-band below f_L."""
+    return _further(evidence.lower)
+
+
+def peaking_above(evidence: Evidence) -> Note | None:
+    """|H| rises above mid-band before f_H."""
+    return _peaking(evidence.upper)
+
+
+def peaking_below(evidence: Evidence) -> Note | None:
+    """|H| rises above mid-band before f_L."""
+    return _peaking(evidence.lower)
+
+
+def negative_share_above(evidence: Evidence) -> Note | None:
+    """Capacitances of which more raises f_H."""
+    return _speeds_up(evidence, evidence.upper)
+
+
+def negative_share_below(evidence: Evidence) -> Note | None:
+    """Capacitances of which more raises f_L."""
+    return _speeds_up(evidence, evidence.lower)
 
 
 def neither_short_nor_open(evidence: Evidence) -> Note | None:
@@ -221,42 +252,62 @@ def as_rebuilt(evidence: Evidence) -> Note | None:
     return Note("as-rebuilt", ", ".join(device.name for device in told), says)
 
 
-def _ill_conditioned(evidence: Evidence, edge: EdgeEvidence, *, upwards: bool) -> Note | None:
-    if edge.hz is None or edge.slope is None or abs(edge.slope) >= SHALLOW:
+def _ill_conditioned(edge: EdgeEvidence) -> Note | None:
+    if edge.hz is None or edge.slope is None or edge.found is None or not edge.found.shallow:
         return None
-    reach = frequency_range(evidence.poles, evidence.zeros)
-    if reach is None:
-        return None
-    where = [_falls(evidence, reach, decibel, upwards=upwards) for decibel in (1.0, 6.0)]
     told = " and ".join(
         f"-{decibel} dB is at {in_hertz(hz)}" if hz is not None else f"-{decibel} dB is never reached"
-        for decibel, hz in zip((1, 6), where, strict=True)
+        for decibel, hz in ((1, edge.found.minus_1_db_hz), (6, edge.found.minus_6_db_hz))
     )
     return Note(
         "ill-conditioned-edge",
         edge.quantity,
-        f"|H| falls by only {abs(edge.slope) * 20:.2g} dB per decade at {edge.quantity}: small changes move it far, no "
-        f"node limits it; {told}",
+        f"the edge lies on a shelf: |H| falls by only {abs(edge.slope) * 20:.2g} dB per decade at {edge.quantity}, "
+        f"small changes move it far, no node limits it; {told}",
     )
 
 
-def _falls(evidence: Evidence, reach: tuple[float, float], decibel: float, *, upwards: bool) -> float | None:
-    """Give the first frequency, going outwards from mid-band, where |H| is `decibel` below it."""
-    midband, network = evidence.bands.midband, evidence.bands.network
-    start = max(midband.frequency_hz, reach[0])
-    stop = reach[1] if upwards else reach[0]
-    if start == stop:
+def _further(edge: EdgeEvidence) -> Note | None:
+    if edge.found is None or not edge.found.further_hz:
         return None
-    count = 2 + int(POINTS_PER_DECADE * abs(math.log10(stop / start)))
-    level = abs(midband.gain) * 10 ** (-decibel / 20)
-    for _ in range(5):
-        grid = np.geomspace(start, stop, count)
-        below = np.flatnonzero(np.abs(response(network, grid)) <= level)
-        if len(below) == 0:
-            return None
-        first = int(below[0])
-        start, stop, count = float(grid[max(first - 1, 0)]), float(grid[first]), 50
-    return stop
+    ways = ("comes back within 3 dB at", "falls again at")
+    told = ", ".join(f"{ways[k % 2]} {in_hertz(hz)}" for k, hz in enumerate(edge.found.further_hz[:TOLD]))
+    return Note("further-crossings", edge.quantity, f"beyond {edge.quantity} |H| {told}: {edge.quantity} is the first")
+
+
+def _peaking(edge: EdgeEvidence) -> Note | None:
+    found = edge.found
+    if found is None or found.peaking_at_hz is None or found.peaking_db < PEAKS_DB:
+        return None
+    q = _quality(10.0 ** (found.peaking_db / 20.0))
+    step = ""
+    if edge.edge == "f_high":
+        step = f", whose step response overshoots by {100.0 * math.exp(-math.pi / math.sqrt(4.0 * q**2 - 1.0)):.2g} %"
+    return Note(
+        "peaking",
+        edge.quantity,
+        f"|H| peaks {found.peaking_db:.3g} dB above mid-band at {in_hertz(found.peaking_at_hz)}, as a pair of poles "
+        f"with Q = {q:.2f} does{step}",
+    )
+
+
+def _quality(peak: float) -> float:
+    """Give Q of the pair 1/(1 + s/(ω0·Q) + s²/ω0²) whose |H| peaks at `peak` = Q/√(1 − 1/(4Q²)), above 1."""
+    return math.sqrt(0.5 * peak * (peak + math.sqrt(peak**2 - 1.0)))
+
+
+def _speeds_up(evidence: Evidence, edge: EdgeEvidence) -> Note | None:
+    parts = {part.name: part for part in evidence.bands.network.parts if part.kind == "capacitance" and part.value > 0}
+    raising = sorted(
+        (name for name, share in edge.shares.items() if share <= -WORTH_A_SHARE and name in parts),
+        key=lambda name: edge.shares[name],
+    )[:TOLD]
+    if not raising:
+        return None
+    named = ", ".join(f"{in_words(parts[name])} ({percent(edge.shares[name])})" for name in raising)
+    has = "has a negative share" if len(raising) == 1 else "have negative shares"
+    says = f"{named} {has} in {edge.quantity}: adding capacitance there raises the edge"
+    return Note("negative-share", edge.quantity, says)
 
 
 def _ideal_gain(evidence: Evidence) -> float | None:

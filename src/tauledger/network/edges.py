@@ -115,8 +115,8 @@ class _Angle(Struct, frozen=True):
         moving = roots[roots != 0.0]
         # seen from a root, the axis point turns through the angle whose tangent is its height over its distance
         height = 2.0 * np.pi * ends[:, None] - moving.imag
-        distance = np.where(moving.real == 0.0, np.finfo(float).tiny, -moving.real)
-        turn = np.arctan(height / np.abs(distance)) * np.sign(distance)
+        side = np.where(moving.real > 0.0, -1.0, 1.0)
+        turn = np.arctan2(height, np.abs(moving.real)) * side
         return float(np.degrees(np.sum(turn[1] - turn[0])))
 
 
