@@ -121,7 +121,7 @@ def test_loads_are_added_between_nodes_and_stand_on_no_card(netlist: Netlist) ->
         (Change(temperature_c=-300.0), "-300 °C is no temperature"),
         (Change(temperature_c=float("nan")), "nan °C is no temperature"),
         (Change(parameters=(("rload", float("inf")),)), "rload: inf is not a finite number"),
-        (Change(elements=(("RL", 0.0),)), "the value of a resistor must be greater than 0, not 0 ohm"),
+        (Change(elements=(("RL", 0.0),)), "the value of a resistor must be other than 0, not 0 ohm"),
         (Change(elements=(("CL", -1e-12),)), "the value of a capacitor must be 0 or more, not -1e-12 F"),
         (Change(elements=(("VCC", float("nan")),)), "VCC: nan is not a finite number"),
         (Change(models=(("X1:nsmall", "bf", float("inf")),)), "bf: inf is not a finite number"),

@@ -177,7 +177,7 @@ def test_twenty_diagnostics_are_enough_and_they_stand_in_file_order(tmp_path: Pa
 
 
 def test_a_card_that_is_wrong_in_every_instance_is_reported_once(tmp_path: Path) -> None:
-    cell = ".subckt cell a y\nR1 a y -1\n.ends\n"
+    cell = ".subckt cell a y\nC1 a y -1\n.ends\n"
     board = written(tmp_path / "board.cir", "pad\n" + PAD + "".join(f"X{k} in out cell\n" for k in range(9)) + cell)
     with pytest.raises(NetlistError) as raised:
         elaborate(read(board))

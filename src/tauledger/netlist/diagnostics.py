@@ -45,11 +45,26 @@ def nearest(name: str, names: Iterable[str], *, otherwise: str = "") -> str:
     """Word a suggestion: the name that looks most like this one (upper and lower case alike), else `otherwise`."""
     spelt = {fold(candidate): candidate for candidate in sorted(names, reverse=True)}
     key = fold(name)
-    close = get_close_matches(key, spelt, n=5, cutoff=0.6)
+    close = get_close_matches(key, spelt, n=5, cutoff=0.6) or _neighbours(key, spelt)
     if not close:
         return otherwise
     best = min(close, key=lambda other: (-SequenceMatcher(None, other, key).ratio(), other))
     return f"did you mean {visible(spelt[best])!r}?"
+
+
+def _neighbours(key: str, names: Iterable[str]) -> list[str]:
+    """Give the name nearest in the alphabet to one of two characters, one of which is right.
+
+    No share of common characters tells qm for qn from e1 for e2, so figures count as different on purpose.
+    """
+    if len(key) != 2:
+        return []
+    slips: list[tuple[int, str]] = []
+    for name in names:
+        wrong = [(ord(a), ord(b)) for a, b in zip(key, name, strict=False) if a != b and not (a + b).isdigit()]
+        if len(name) == 2 and len(wrong) == 1 and (key[0] == name[0] or key[1] == name[1]):
+            slips.append((abs(wrong[0][0] - wrong[0][1]), name))
+    return [min(slips)[1]] if slips else []
 
 
 class Site(Struct, frozen=True):

@@ -3,17 +3,21 @@
 from __future__ import annotations
 
 import math
+import re
 from collections.abc import Iterable, Iterator, Sequence
 
 from msgspec import Struct
 
 from tauledger.circuit import fold
+from tauledger.errors import NetlistError
 from tauledger.netlist.diagnostics import Site, nearest
 from tauledger.netlist.formulas import Behaviour
 from tauledger.netlist.items import Item, Setting, Value, Word, flattened
 from tauledger.netlist.letters import Letter
 from tauledger.netlist.numbers import read_number
 from tauledger.netlist.scopes import Scope, number_of
+
+_SCALE_AND_UNIT = re.compile(r"(?:meg|mil|[tgkmuµμnpf])?(?:ohms?|Ω|f|h|hz|v|a)?", re.IGNORECASE)
 
 X_SHAPE = "X1 node1 node2 .. name"
 
@@ -160,6 +164,24 @@ def instance(site: Site, card: Fields) -> InstanceCard:
         raise site.fault(len(site.card.text), "the name of the subcircuit is missing", f"write {X_SHAPE}")
     words = tuple(nodes(site, places))
     return InstanceCard(words[:-1], words[-1], card.settings)
+
+
+def parted_number(site: Site, first: Item, second: Item) -> NetlistError | None:
+    """Make the error for a number that a blank or a decimal comma has parted in two words; None where it has not."""
+    if not (isinstance(first, Word) and isinstance(second, Word)):
+        return None
+    number = read_number(first.text)
+    if number is None or number.tail:
+        return None
+    end = first.at + len(first.text)
+    between = site.card.text[end : second.at]
+    both = f"{first.text}{between}{second.text}"
+    if between.strip() == "," and first.text.lstrip("+-").isdigit() and second.text[:1].isdigit():
+        message = f"{both!r} is two numbers: a comma parts them"
+        return site.fault(first, message, f"write the decimal point: {first.text}.{second.text}")
+    if not between.strip() and first.text[-1].isdigit() and _SCALE_AND_UNIT.fullmatch(second.text):
+        return site.fault(first, f"{both!r} is two words", f"write {first.text}{second.text}")
+    return None
 
 
 def multiplicity(site: Site, setting: Setting, scope: Scope) -> float:

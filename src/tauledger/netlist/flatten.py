@@ -237,6 +237,10 @@ def _plain(
         around.scope.notes.append(ReadingNote(site.where, f"{name} has 0 Ω: 1 mΩ is put there, as ngspice does"))
     elif problem := impossible(letter, value):
         raise InputError(f"{name}: {problem}")
+    elif value < 0.0:
+        own_name = site.card.text.split(maxsplit=1)[0]
+        says = f"{own_name} has {value:.6g} Ω, less than 0: taken as written, as ngspice does"
+        around.scope.notes.append(ReadingNote(site.where, says))
     a, b = (node_of(netlist, draft, around, node) for node in part.nodes)
     scaled = value * part.m if letter == "C" else value / part.m
     draft.rows.append(Row(letter, name, a, b, scaled, number, around.path))

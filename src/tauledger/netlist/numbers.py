@@ -12,6 +12,9 @@ from msgspec import Struct
 SCALES = {"t": 1e12, "g": 1e9, "meg": 1e6, "k": 1e3, "m": 1e-3, "u": 1e-6, "µ": 1e-6, "μ": 1e-6, "n": 1e-9, "p": 1e-12}
 SCALES |= {"f": 1e-15, "mil": 25.4e-6}
 
+# A second suffix in the place of the unit; m and f there are metre and farad.
+DOUBLED = re.compile(r"(.*\d\.?(?:meg|[tgkmuµμnpf]))(?:meg|[tgkuµμnp])", re.IGNORECASE | re.DOTALL)
+
 _DECIMAL = re.compile(r"([+-]?(?:\d+\.?\d*|\.\d+))(?:([eEdD])([+-]?\d{1,9}))?(.*)", re.ASCII | re.DOTALL)
 _SUFFIX = re.compile(r"meg|mil|[tgkmuµμnpf]", re.IGNORECASE)
 _UNIT = re.compile(r"[A-Za-zµμΩ°%]*")

@@ -4,7 +4,15 @@ from __future__ import annotations
 
 from tauledger.circuit import fold
 from tauledger.netlist.diagnostics import Site, nearest
-from tauledger.netlist.elements import ElementCard, Fields, behind, keyword_fault, multiplicity, nodes
+from tauledger.netlist.elements import (
+    ElementCard,
+    Fields,
+    behind,
+    keyword_fault,
+    multiplicity,
+    nodes,
+    parted_number,
+)
 from tauledger.netlist.formulas import Behaviour
 from tauledger.netlist.items import Setting, Value, Word
 from tauledger.netlist.letters import PASSIVES
@@ -62,7 +70,7 @@ def passive(site: Site, card: Fields, letter: str, models: frozenset[str], scope
         elif quantity:
             raise site.fault(place, "the value is given twice", f"write {SHAPE[letter]}")
         else:
-            raise _too_many(site, place, letter, models, scope)
+            raise _too_many(site, given, place, letter, models, scope)
     if given is None and model is None:
         raise site.fault(len(site.card.text), "the value is missing", f"write {SHAPE[letter]}")
     plus, minus = nodes(site, places[:2])
@@ -89,10 +97,11 @@ def passive(site: Site, card: Fields, letter: str, models: frozenset[str], scope
 
 def impossible(letter: str, value: float) -> str:
     """Say why an R, C or L cannot have this value in SI units; empty where it can."""
-    if value > 0.0 or (value == 0.0 and letter != "R"):
+    if value > 0.0 or (value != 0.0) == (letter == "R"):
         return ""
-    least = "greater than 0" if letter == "R" else "0 or more"
-    return f"the value of a {PASSIVES[letter]} must be {least}, not {value:.6g} {UNIT_WORD[letter]}"
+    least = "other than 0" if letter == "R" else "0 or more"
+    article = "an" if letter == "L" else "a"
+    return f"the value of {article} {PASSIVES[letter]} must be {least}, not {value:.6g} {UNIT_WORD[letter]}"
 
 
 def _checked(site: Site, value: Value, number: float, letter: str) -> float:
@@ -129,8 +138,10 @@ def _coefficients(site: Site, setting: Setting, card: Fields, scope: Scope) -> d
     return found
 
 
-def _too_many(site: Site, place: Value, letter: str, models: frozenset[str], scope: Scope) -> Exception:
+def _too_many(site: Site, given: Value, place: Value, letter: str, models: frozenset[str], scope: Scope) -> Exception:
     word = PASSIVES[letter]
+    if (parted := parted_number(site, given, place)) is not None:
+        return parted
     if isinstance(place, Word) and read_number(place.text) is None and find(scope, fold(place.text)) is None:
         hint = nearest(place.text, models, otherwise=f"write {SHAPE[letter]}")
         return site.fault(place, f"no model is called {place.text!r}", hint)

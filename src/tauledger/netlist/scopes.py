@@ -19,7 +19,7 @@ from tauledger.netlist.diagnostics import Site, nearest
 from tauledger.netlist.expressions import Surrounding, evaluate
 from tauledger.netlist.formulas import Call, Formula, Name, Tree, names
 from tauledger.netlist.items import Function, Quoted, Setting, Value, Word, width
-from tauledger.netlist.numbers import read_number
+from tauledger.netlist.numbers import DOUBLED, read_number
 
 MOST_NESTED_CALLS = 30
 MOST_CALLS = 50_000
@@ -149,6 +149,9 @@ def number_of(site: Site, value: Value, scope: Scope) -> float:
             formula = decimal.tail[0] in "*/+-^%"
             hint = "a formula stands in braces: {..}" if formula else ""
             raise site.fault(value, f"{value.text!r} is not a number", hint)
+        elif (doubled := DOUBLED.fullmatch(value.text)) is not None:
+            says = f"{value.text} is {doubled.group(1)}, as ngspice reads it: what follows a suffix is a unit"
+            scope.notes.append(ReadingNote(site.where, says))
         if abs(decimal.value) == float("inf"):
             raise site.fault(value, f"{value.text!r} is beyond the range of numbers")
         return decimal.value

@@ -9,7 +9,7 @@ from msgspec import Struct
 
 from tauledger.circuit import fold
 from tauledger.netlist.diagnostics import Site
-from tauledger.netlist.elements import multiplicity
+from tauledger.netlist.elements import multiplicity, parted_number
 from tauledger.netlist.formulas import Formula
 from tauledger.netlist.items import Function, Group, Item, Setting, Value, Word, flattened
 from tauledger.netlist.letters import SOURCES, TIME_FUNCTIONS
@@ -75,7 +75,7 @@ def source(site: Site, items: tuple[Item, ...], letter: str, scope: Scope) -> So
         ):
             dc, rest = number_of(site, item, scope), rest[1:]
         else:
-            raise _unexpected(site, item, word, letter)
+            raise _unexpected(site, flat[len(flat) - len(rest) - 1], item, word, letter)
     magnitude, phase = ac if ac is not None else (None, 0.0)
     if dc is None and at_start is not None and math.isnan(at_start):
         raise site.fault(flat[2], "the value at t = 0 is drawn at random", f"write {SHAPE}")
@@ -126,7 +126,10 @@ def _values(rest: list[Item], most: int, scope: Scope) -> tuple[list[Value], lis
     return values, rest
 
 
-def _unexpected(site: Site, item: Item, word: str, letter: str) -> Exception:
+def _unexpected(site: Site, before: Item, item: Item, word: str, letter: str) -> Exception:
+    last = before.value if isinstance(before, Setting) else before
+    if (parted := parted_number(site, last, item)) is not None:
+        return parted
     if word in REFUSED_WORDS:
         return site.fault(item, f"{word} is not supported by this version", f"write {SHAPE}")
     if word in TIME_FUNCTIONS:
