@@ -1,6 +1,7 @@
 """tauledger reconciles the hand analysis of a transistor amplifier with its SPICE simulation.
 
-`review(path)` is the whole walk; `Network.from_parts(...)` enters it without netlist and engine.
+`review(path)` is the whole walk; `review_elements(...)` enters it with elements given by keyword calls, and
+`Network.from_parts(...)` with part records, without netlist and engine.
 Names are imported when they are first used, so that `tauledger --help` stays quick.
 """
 
@@ -11,11 +12,20 @@ from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
     from tauledger.circuit import Change, Circuit
+    from tauledger.devices.by_keyword import bipolar, field_effect
+    from tauledger.devices.parts import (
+        capacitance,
+        current_source,
+        inductance,
+        resistance,
+        transconductance,
+        voltage_source,
+    )
     from tauledger.errors import InputError, NetlistError, TauledgerError
     from tauledger.netlist.elaborate import elaborate
     from tauledger.netlist.reader import read
     from tauledger.network.assemble import Network
-    from tauledger.pipeline import review, review_network
+    from tauledger.pipeline import review, review_elements, review_network
     from tauledger.record import Review
     from tauledger.report.json import to_json
     from tauledger.report.terminal import render
@@ -30,12 +40,21 @@ _HOMES = {
     "Network": "tauledger.network.assemble",
     "Review": "tauledger.record",
     "TauledgerError": "tauledger.errors",
+    "bipolar": "tauledger.devices.by_keyword",
+    "capacitance": "tauledger.devices.parts",
+    "current_source": "tauledger.devices.parts",
     "elaborate": "tauledger.netlist.elaborate",
+    "field_effect": "tauledger.devices.by_keyword",
+    "inductance": "tauledger.devices.parts",
     "read": "tauledger.netlist.reader",
     "render": "tauledger.report.terminal",
+    "resistance": "tauledger.devices.parts",
     "review": "tauledger.pipeline",
+    "review_elements": "tauledger.pipeline",
     "review_network": "tauledger.pipeline",
     "to_json": "tauledger.report.json",
+    "transconductance": "tauledger.devices.parts",
+    "voltage_source": "tauledger.devices.parts",
 }
 
 __all__ = [
@@ -46,12 +65,21 @@ __all__ = [
     "Network",
     "Review",
     "TauledgerError",
+    "bipolar",
+    "capacitance",
+    "current_source",
     "elaborate",
+    "field_effect",
+    "inductance",
     "read",
     "render",
+    "resistance",
     "review",
+    "review_elements",
     "review_network",
     "to_json",
+    "transconductance",
+    "voltage_source",
 ]
 
 

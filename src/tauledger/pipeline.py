@@ -13,11 +13,12 @@ from typing import TYPE_CHECKING
 
 from msgspec.structs import replace
 
-from tauledger.circuit import NO_CHANGE, Change, joined
+from tauledger.circuit import GROUND, NO_CHANGE, Change, Port, joined
 from tauledger.compose.review import compose
 from tauledger.compose.setting import unit_of
 from tauledger.devices.catalogue import linearise
 from tauledger.devices.family import Device
+from tauledger.devices.parts import Part
 from tauledger.engine.client import Engine, start_engine
 from tauledger.errors import InputError, NetlistError
 from tauledger.explain import Explanation, explain
@@ -36,6 +37,7 @@ __all__ = [
     "page_for",
     "recompute",
     "review",
+    "review_elements",
     "review_network",
     "solve",
     "solve_network",
@@ -146,6 +148,25 @@ def review_network(
     explanation = explain(numbers)
     found = compose(numbers, explanation, title=title)
     return found if page is None else _with_page(found, page, numbers, explanation)
+
+
+def review_elements(
+    *elements: Part | Device,
+    output: str,
+    minus: str = GROUND,
+    midband_hz: float | None = None,
+    title: str = "",
+) -> Review:
+    """Review a network that is given element by element, without netlist and engine; values are small-signal ones.
+
+    elements: parts ("resistance", "capacitance", "voltage_source" and the like) and transistors ("bipolar",
+    "field_effect"); supplies are ground, "0". The response is the voltage from `output` to `minus` per drive.
+    Raises NetworkError where the network has no unique solution, or names a node twice or one that is not there.
+    """
+    devices = tuple(element for element in elements if isinstance(element, Device))
+    parts = [part for element in elements for part in (element.parts if isinstance(element, Device) else (element,))]
+    network = Network.from_parts(parts, output=Port(output, minus, "voltage"))
+    return review_network(network, devices=devices, midband_hz=midband_hz, title=title)
 
 
 def page_for(
