@@ -23,6 +23,7 @@ from tauledger.quantity import percent
 SEPARATED = 10.0
 THIRD_FAR = 4.0
 MISSES = 0.2
+MISSES_BY_HALF = 0.5
 
 
 class HandPole(Struct, frozen=True):
@@ -69,13 +70,13 @@ def pair_frequency_and_q(pole: complex) -> tuple[float, float]:
 
 
 def _kept(dominant: list[complex], told: dict[complex, HandPole]) -> dict[complex, HandPole]:
-    """Leave out a formula that misses its pole by more than 20 %; the dominant one keeps it, with how far it is off."""
+    """Leave out a formula that misses its pole by more than 20 %; up to 50 % the dominant one keeps it, and says so."""
     kept: dict[complex, HandPole] = {}
     for pole, by_hand in told.items():
         off = 0.0 if by_hand.hz is None else by_hand.hz * 2 * math.pi / abs(pole) - 1.0
         if abs(off) <= MISSES:
             kept[pole] = by_hand
-        elif pole in dominant:
+        elif pole in dominant and abs(off) <= MISSES_BY_HALF:
             kept[pole] = replace(by_hand, formula=f"{by_hand.formula}, {percent(off)} off")
     return kept
 
