@@ -89,6 +89,7 @@ def test_nested_m_is_the_product_where_ngspice_takes_the_outermost_alone(tmp_pat
     """ngspice 39: the m of the inner instance is lost; the product is what m copies mean, and a note says so."""
     cell = ".subckt cell a y\nR1 a y 1k m=2\n.ends\n"
     board = "copies\nV1 in 0 1 AC 1\nX1 in out pair m=3\nR2 out 0 1k\n.subckt pair a y\nX1 a y cell m=5\n.ends\n" + cell
+    board += ".print ac v(out)\n"
     path = tmp_path / "board.cir"
     path.write_text(board)
     circuit = elaborate(read(path))

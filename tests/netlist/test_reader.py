@@ -160,7 +160,7 @@ def test_includes_have_a_number(tmp_path: Path) -> None:
 
 def test_a_file_of_that_name_in_the_current_folder_is_noted(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     written(tmp_path / "board" / "load.inc", "RL out 0 1k\n")
-    board = written(tmp_path / "board" / "board.cir", "pad\n.include load.inc\n" + PAD)
+    board = written(tmp_path / "board" / "board.cir", "pad\n.include load.inc\n.print ac v(out)\n" + PAD)
     assert elaborate(read(board)).notes == ()
     monkeypatch.chdir(tmp_path)
     written(tmp_path / "load.inc", "RL out 0 2k\n")

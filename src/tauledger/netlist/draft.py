@@ -60,7 +60,8 @@ class Draft(Struct):
     numbers: node number by folded flat name. taken: by flat element name the number of its card. changed: values of a
     Change by folded name that have not been used yet; used ones are taken out. refusals: what can be read but not
     reviewed. nodesets: volt by node number. scale: of the sizes of MOS transistors (.options scale). scopes: of all
-    instances but the netlist itself. contexts: per instance the lines that say where it stands.
+    instances but the netlist itself. contexts: per instance the lines that say where it stands. pins: node number, path
+    and card of every node on an X card.
     """
 
     nodes: list[str] = field(default_factory=lambda: [GROUND])
@@ -78,6 +79,7 @@ class Draft(Struct):
     scale: float = 1.0
     scopes: list[Scope] = field(default_factory=list)
     contexts: list[tuple[str, ...]] = field(default_factory=lambda: [()])
+    pins: list[tuple[int, int, int]] = field(default_factory=list)
 
 
 def check_finite(name: str, value: float) -> None:

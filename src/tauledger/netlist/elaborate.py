@@ -9,20 +9,29 @@ import math
 from typing import Literal
 
 from msgspec import Struct
+from msgspec.structs import replace
 
 from tauledger.circuit import ADDED, GROUND, NO_CHANGE, Change, Circuit, Port, ReadingNote, fold
 from tauledger.errors import Diagnostic, InputError, NetlistError
 from tauledger.netlist.conditions import counts, define_all
 from tauledger.netlist.diagnostics import Site, gather, nearest, visible
-from tauledger.netlist.draft import Draft, Row, check_all_used, check_finite, draft_for, finished, inductors
+from tauledger.netlist.draft import Draft, Row, check_all_used, check_finite, draft_for, finished, inductors, passives
 from tauledger.netlist.flatten import flatten
-from tauledger.netlist.hints import hints
+from tauledger.netlist.hints import asked, sweep_notes
 from tauledger.netlist.items import Setting, Value, flattened
 from tauledger.netlist.netlist import Netlist
 from tauledger.netlist.options import EFFECTIVE, option_settings, plain_value
-from tauledger.netlist.ports import choose_drive, choose_output, driven_as_written, parse_port
+from tauledger.netlist.ports import (
+    Chosen,
+    Driven,
+    choose_drive,
+    choose_output,
+    driven_as_written,
+    parse_port,
+)
 from tauledger.netlist.references import check_references
 from tauledger.netlist.scopes import Scope, work_out_all
+from tauledger.netlist.slips import first_place, forgotten_title, single_connections, strange_requests
 from tauledger.netlist.surroundings import Surroundings
 
 ABSOLUTE_ZERO_C = -273.15
@@ -97,27 +106,39 @@ def elaborated(
     if faults:
         raise gather(faults, netlist.files)
     currents = _currents(draft)
+    untitled = forgotten_title(netlist, draft)
+    looked_at = asked(netlist)
+    chosen = Chosen(Port(GROUND))
     if purpose == "reading" and drive is None and output is None:
-        driven, port = driven_as_written(draft.elements), Port(GROUND)
+        driven = driven_as_written(draft.elements)
     else:
-        driven = choose_drive(draft.elements, drive)
+        driven = _drive(draft, drive, untitled)
         forced = [currents[source.source] for source in driven.drive if source.kind == "voltage"]
         forced += [Port(port.minus, port.plus) for port in forced]
-        port = choose_output(output, hints(netlist).outputs, draft.nodes, currents, forced)
+        chosen = choose_output(output, looked_at, draft.nodes, currents, forced)
     _add_loads(draft, change, currents)
     circuit = finished(
         draft,
         title=netlist.title,
         elements=driven.elements,
         drive=driven.drive,
-        output=port,
+        output=chosen.port,
         temperature_c=settings["temp"],
         tnom_c=settings["tnom"],
         options=tuple((name, settings[name]) for name in ("gmin",) if name in settings),
-        notes=tuple(dict.fromkeys(netlist.notes + tuple(scope.notes))),
+        notes=(),
         nodesets=tuple(draft.nodesets.items()),
     )
-    return Elaborated(circuit, (scope, *draft.scopes))
+    notes = [*netlist.notes, *([untitled] if untitled else []), *scope.notes, *sweep_notes(netlist)]
+    notes += strange_requests(draft, circuit, looked_at)
+    if chosen.how:
+        node = draft.numbers[fold(chosen.port.plus)]
+        where = chosen.at.where if chosen.at else first_place(netlist, draft, circuit, node)
+        notes.append(ReadingNote(where, chosen.how))
+    spared = {fold(name) for hint in looked_at if hint.name[0] == "v" for name in hint.name[2:-1].split(",")}
+    spared |= {fold(chosen.port.plus), fold(chosen.port.minus)}
+    notes += single_connections(netlist, draft, circuit, [draft.numbers[n] for n in spared if n in draft.numbers])
+    return Elaborated(replace(circuit, notes=tuple(dict.fromkeys(notes))), (scope, *draft.scopes))
 
 
 def instance_context(netlist: Netlist, circuit: Circuit, path: int) -> tuple[str, ...]:
@@ -199,6 +220,27 @@ def _check_ground(netlist: Netlist, draft: Draft) -> None:
     )
     if not connected:
         raise InputError("no element is connected to ground", "call one node 0: all voltages are taken against it")
+
+
+def _drive(draft: Draft, wanted: str | None, untitled: ReadingNote | None) -> Driven:
+    """Choose what is driven; where nothing is, a title that was forgotten may be why."""
+    try:
+        return choose_drive(draft.elements, wanted, supplied=_supplied(draft))
+    except InputError as error:
+        if untitled is None:
+            raise
+        raise InputError(error.message, f"{error.hint}\n  {untitled.where}: {untitled.says}") from error
+
+
+def _supplied(draft: Draft) -> frozenset[int]:
+    """Give the nodes that feed collectors and drains: directly, or through one resistor or inductor."""
+    fed = {element.nodes[0] for element in draft.elements if element.letter in "QMJZ"}
+    if any(element.parameter("acmag", 0.0) != 0.0 for element in draft.elements if element.letter in "VI"):
+        return frozenset()
+    through = passives(draft)
+    ends = [(a, b) for k, a, b in zip(through.kind, through.a.tolist(), through.b.tolist(), strict=True) if k in "RL"]
+    beyond = {b for a, b in ends if a in fed} | {a for a, b in ends if b in fed}
+    return frozenset((fed | beyond) - {0})
 
 
 def _currents(draft: Draft) -> dict[str, Port]:

@@ -382,6 +382,7 @@ def _instance(
         models={},
         seen=[],
     )
+    draft.pins.extend((node, around.path, number) for node in inner.ports.values())
     before = len(faults)
     work_out_all(scope, faults)
     if len(faults) == before:

@@ -3,11 +3,13 @@
 from __future__ import annotations
 
 import re
+from collections.abc import Iterator, Sequence
 
 from msgspec import Struct
 
-from tauledger.netlist.diagnostics import visible
-from tauledger.netlist.netlist import Netlist, place
+from tauledger.circuit import ReadingNote
+from tauledger.netlist.diagnostics import Site, nearest, visible
+from tauledger.netlist.netlist import Card, Netlist, place
 from tauledger.netlist.numbers import read_number
 
 _REQUEST = re.compile(r"(?<![\w.])([vi])(?:db|m|p|r|i)?\s*\(\s*([^()\s,]+)\s*(?:,\s*([^()\s,]+)\s*)?\)", re.IGNORECASE)
@@ -15,6 +17,7 @@ _OF_AC = re.compile(r"(?<![\w.])[vi](?:db|m|p|r|i)\s*\(|(?<![\w.])(?:db|mag|ph|c
 _OUTPUT_WORDS = frozenset(
     [".print", ".plot", ".save", ".probe", ".meas", ".measure", "print", "plot", "meas", "measure", "save", "hardcopy"]
 )
+_SWEEPS = ("dec", "oct", "lin")
 _OTHER_ANALYSES = frozenset(["tran", "dc", "op", "noise", "disto", "sp"])
 
 
@@ -29,21 +32,63 @@ class Hints(Struct, frozen=True):
     f_stop_hz: float | None = None
 
 
+class Asked(Struct, frozen=True):
+    """One output that a card asks for: "v(out)", its card, where on it, how wide, and the card's word.
+
+    rank: 0 where it is asked of an AC analysis, 1 of none in particular, 2 of another one.
+    """
+
+    name: str
+    site: Site
+    at: int
+    width: int
+    word: str
+    rank: int
+
+
 def hints(netlist: Netlist) -> Hints:
     """Gather the hints of a netlist."""
-    ranked: dict[int, list[str]] = {0: [], 1: [], 2: []}
-    span: tuple[float, float] | None = None
-    for text in netlist.requests:
-        words = text.lower().split()
-        if not words:
+    spans = (_range(words) for _, words in _requests(netlist) if words[0] in (".ac", "ac"))
+    span = next((span for span in spans if span is not None), (None, None))
+    return Hints(tuple(dict.fromkeys(found.name for found in foremost(asked(netlist)))), *span)
+
+
+def asked(netlist: Netlist) -> tuple[Asked, ...]:
+    """Gather the outputs that are asked for, in order, with their places."""
+    found: list[Asked] = []
+    for card, words in _requests(netlist):
+        if words[0] not in _OUTPUT_WORDS:
             continue
-        if words[0] in (".ac", "ac"):
-            span = span or _range(words)
-        elif words[0] in _OUTPUT_WORDS:
-            rank = _rank(text, words)
-            ranked[rank].extend(name for name in _outputs(text) if name not in ranked[rank])
-    outputs = next((names for _, names in sorted(ranked.items()) if names), [])
-    return Hints(tuple(outputs), *(span or (None, None)))
+        rank, site = _rank(card.text, words), Site(netlist.files, card)
+        for match in _REQUEST.finditer(card.text):
+            kind, plus, minus = match.groups()
+            name = f"{kind.lower()}({plus},{minus})" if minus else f"{kind.lower()}({plus})"
+            found.append(Asked(name, site, match.start(), match.end() - match.start(), words[0], rank))
+    return tuple(found)
+
+
+def foremost(found: Sequence[Asked]) -> tuple[Asked, ...]:
+    """Keep those of the foremost rank: of an AC analysis where there are any."""
+    first = min((one.rank for one in found), default=0)
+    return tuple(one for one in found if one.rank == first)
+
+
+def sweep_notes(netlist: Netlist) -> list[ReadingNote]:
+    """Note every `.ac` whose points are spread by a word that ngspice does not know."""
+    notes: list[ReadingNote] = []
+    for card, words in _requests(netlist):
+        if words[0] in (".ac", "ac") and len(words) > 1 and words[1] not in _SWEEPS:
+            meant = nearest(words[1], _SWEEPS, otherwise="ngspice knows dec, oct and lin")
+            notes.append(ReadingNote(Site(netlist.files, card).where, f"{words[0]} {visible(words[1])}: {meant}"))
+    return notes
+
+
+def _requests(netlist: Netlist) -> Iterator[tuple[Card, list[str]]]:
+    """Run through the requests with their words in lower case; a line of blanks is none."""
+    for card in netlist.requests:
+        words = card.text.lower().split()
+        if words:
+            yield card, words
 
 
 def ac_range(netlist: Netlist) -> tuple[float, float] | None:
@@ -60,13 +105,6 @@ def _rank(text: str, words: list[str]) -> int:
     if of == "ac" or _OF_AC.search(text):
         return 0
     return 2 if of in _OTHER_ANALYSES else 1
-
-
-def _outputs(text: str) -> list[str]:
-    found = []
-    for kind, plus, minus in _REQUEST.findall(text):
-        found.append(f"{kind.lower()}({plus},{minus})" if minus else f"{kind.lower()}({plus})")
-    return found
 
 
 def _range(words: list[str]) -> tuple[float, float] | None:

@@ -136,11 +136,11 @@ class Netlist(Struct, frozen=True):
     """All that was read.
 
     path: as typed. items: per card what its text holds, empty where the card is not read by place and keyword.
-    globals: nodes named by `.global`, folded. options, temperatures: card numbers. requests: texts of analyses and
-    outputs, which are hints only. past: what was read past, by word and count. sha256: over the bytes of all files in
-    the order in which they were read. blocks: the cards of `.if`, `.elseif`, `.else` of each block; within: for a card
-    in such blocks their numbers and those of the branches, outermost first. passed: number of a card and what on it
-    was read past. scripts: the `.control` blocks.
+    globals: nodes named by `.global`, folded. options, temperatures: card numbers. requests: the cards of analyses and
+    outputs and the lines of `.control` blocks, which are hints only. past: what was read past, by word and count.
+    sha256: over the bytes of all files in the order in which they were read. blocks: the cards of `.if`, `.elseif`,
+    `.else` of each block; within: for a card in such blocks their numbers and those of the branches, outermost first.
+    passed: number of a card and what on it was read past. scripts: the `.control` blocks.
     """
 
     path: str
@@ -152,7 +152,7 @@ class Netlist(Struct, frozen=True):
     globals: tuple[str, ...]
     options: tuple[int, ...]
     temperatures: tuple[int, ...]
-    requests: tuple[str, ...]
+    requests: tuple[Card, ...]
     past: tuple[tuple[str, int], ...]
     sha256: str
     notes: tuple[ReadingNote, ...] = ()

@@ -12,7 +12,8 @@ from msgspec.structs import replace
 
 from tauledger.circuit import GROUND, Drive, Element, Port, PortKind, fold
 from tauledger.errors import InputError
-from tauledger.netlist.diagnostics import nearest, visible
+from tauledger.netlist.diagnostics import Site, nearest, visible
+from tauledger.netlist.hints import Asked, foremost
 
 OUTPUT_NAMES = ("out", "vout", "output")
 MOST_CANDIDATES = 12
@@ -28,9 +29,10 @@ class Driven(Struct, frozen=True):
     drive: tuple[Drive, ...]
 
 
-def choose_drive(elements: Sequence[Element], wanted: str | None) -> Driven:
+def choose_drive(elements: Sequence[Element], wanted: str | None, *, supplied: frozenset[int] = frozenset()) -> Driven:
     """Drive every source with an AC value, or the one source that is wanted with 1 and all others with 0.
 
+    supplied: numbers of the nodes that feed collectors and drains; a source there is a supply.
     Raises InputError where no source has an AC value, and where the wanted one does not exist or is no source.
     """
     sources = [element for element in elements if element.letter in "VI"]
@@ -46,7 +48,8 @@ def choose_drive(elements: Sequence[Element], wanted: str | None) -> Driven:
         return Driven(tuple(elements), (Drive(chosen.name, _kind(chosen), 1.0 + 0.0j),))
     driven = driven_as_written(elements)
     if not driven.drive:
-        first = sources[0].name if sources else "Vin"
+        signals = [element for element in sources if supplied.isdisjoint(element.nodes)]
+        first = min(signals, key=lambda element: element.parameter("dc", 0.0) != 0.0).name if signals else "SOURCE"
         raise InputError(
             "no source has an AC value",
             f"write AC 1 on the card of the source that carries the signal, or name it: --input {first}"
@@ -86,40 +89,65 @@ def _with_ac(element: Element, magnitude: float) -> Element:
     return replace(element, parameters=(*kept, ("acmag", magnitude), ("acphase", 0.0)))
 
 
+class Chosen(Struct, frozen=True):
+    """Where the response is taken. how: why there, empty where the user or a single hint names it.
+
+    at: the card that asks for it, None where none does.
+    """
+
+    port: Port
+    how: str = ""
+    at: Site | None = None
+
+
 def choose_output(
     wanted: str | None,
-    hinted: Sequence[str],
+    hinted: Sequence[Asked],
     nodes: Sequence[str],
     currents: Mapping[str, Port],
     drive: Sequence[Port],
-) -> Port:
+) -> Chosen:
     """Choose where the response is taken: as wanted, else as hinted, else the only node called out, vout or output.
 
-    hinted: texts such as "v(out)". nodes: all nodes. currents: where the elements stand whose current can be
-    read. drive: what the sources force; a hint at that is none. Raises InputError that lists candidates.
+    nodes: all nodes. currents: where the elements stand whose current can be read. drive: what the sources force; a
+    hint at that is none. Raises InputError that lists candidates, NetlistError at the hint where nothing but a hint at
+    what does not exist is there.
     """
     if wanted is not None:
-        return parse_port(wanted, nodes, currents)
-    ports: list[Port] = []
-    for hint in hinted:
+        return Chosen(parse_port(wanted, nodes, currents))
+    ports: dict[Port, Asked] = {}
+    failed: list[tuple[Asked, InputError]] = []
+    for hint in foremost(hinted):
         try:
-            port = parse_port(hint, nodes, currents)
-        except InputError:
-            # A hint may speak of what only another analysis has.
+            port = parse_port(hint.name, nodes, currents)
+        except InputError as error:
+            failed.append((hint, error))
             continue
-        if port not in drive and port not in ports:
-            ports.append(port)
+        if port not in drive:
+            ports.setdefault(port, hint)
     if len(ports) == 1:
-        return ports[0]
+        return Chosen(next(iter(ports)))
     named = [port for port in ports if fold(port.plus) in OUTPUT_NAMES and port.minus == GROUND]
     if not ports:
         named = [Port(node) for node in nodes if fold(node) in OUTPUT_NAMES]
+    if len(named) == 1 and ports:
+        words = " and ".join(dict.fromkeys(hint.word for hint in ports.values()))
+        how = f"output {named[0]}: of {_listed(list(map(str, ports)))} asked for in {words}, the one called so"
+        return Chosen(named[0], how, ports[named[0]].site)
     if len(named) == 1:
-        return named[0]
+        return Chosen(named[0], f"output {named[0]}: the only node called {', '.join(OUTPUT_NAMES[:-1])} or output")
+    if not ports and not named and failed:
+        hint, cause = failed[0]
+        raise hint.site.fault(hint.at, cause.message, cause.hint, wide=hint.width)
     candidates = [str(port) for port in ports] or [f"v({node})" for node in nodes if node != GROUND]
-    listed = ", ".join(candidates[:MOST_CANDIDATES]) + (", .." if len(candidates) > MOST_CANDIDATES else "")
     message = "the netlist names several outputs" if ports else "the netlist does not say where the output is"
-    raise InputError(message, f"name one: --output 'v(node)', 'v(node,node)' or 'i(source)'; there are {listed}")
+    raise InputError(
+        message, f"name one: --output 'v(node)', 'v(node,node)' or 'i(source)'; there are {_listed(candidates)}"
+    )
+
+
+def _listed(names: Sequence[str]) -> str:
+    return ", ".join(names[:MOST_CANDIDATES]) + (", .." if len(names) > MOST_CANDIDATES else "")
 
 
 def parse_port(text: str, nodes: Sequence[str], currents: Mapping[str, Port]) -> Port:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import re
 from collections import Counter
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
 
 from msgspec import Struct, field
 
@@ -16,7 +16,18 @@ from tauledger.netlist.diagnostics import Site, gather, nearest, visible
 from tauledger.netlist.expressions import parse_formula
 from tauledger.netlist.items import Item, Setting, Word, flattened
 from tauledger.netlist.letters import READ, TIME_FUNCTIONS
-from tauledger.netlist.netlist import TOP, Card, Cards, Definition, ItemsOfCards, Netlist, Script, SourceFile, numbered
+from tauledger.netlist.netlist import (
+    TOP,
+    Card,
+    Cards,
+    Definition,
+    ItemsOfCards,
+    Netlist,
+    Piece,
+    Script,
+    SourceFile,
+    numbered,
+)
 from tauledger.netlist.options import EFFECTIVE, option_settings
 from tauledger.netlist.runs import Run
 
@@ -70,7 +81,7 @@ class _Sorting(Struct):
     globals: list[str] = field(default_factory=list)
     options: list[int] = field(default_factory=list)
     temperatures: list[int] = field(default_factory=list)
-    requests: list[str] = field(default_factory=list)
+    requests: list[Card] = field(default_factory=list)
     past: Counter[str] = field(default_factory=Counter)
     notes: list[ReadingNote] = field(default_factory=list)
     passed: list[tuple[int, str]] = field(default_factory=list)
@@ -133,7 +144,7 @@ def structure(
         globals=tuple(sorting.globals),
         options=tuple(sorting.options),
         temperatures=tuple(sorting.temperatures),
-        requests=tuple(sorting.requests) + tuple(line for script in scripts for line in script.lines),
+        requests=(*sorting.requests, *(card for script in scripts for card in _lines_of(files, script))),
         past=tuple(sorting.past.items()),
         sha256="",
         notes=tuple(sorting.notes),
@@ -142,6 +153,13 @@ def structure(
         blocks=tuple(map(tuple, sorting.blocks)),
         within=sorting.within,
     )
+
+
+def _lines_of(files: tuple[SourceFile, ...], script: Script) -> Iterator[Card]:
+    """Run through the lines of a `.control` block as cards."""
+    for line, text in enumerate(script.lines, script.line + 1):
+        written = files[script.file].lines[line - 1]
+        yield Card(text, script.file, (Piece(0, line, len(written) - len(written.lstrip()) + 1),))
 
 
 def _sort_run(sorting: _Sorting, number: int, cards: Cards) -> None:
@@ -180,11 +198,11 @@ def _sort(sorting: _Sorting, number: int, site: Site) -> tuple[Item, ...]:
         return items
     if head in ANALYSES:
         sorting.pass_over(number, "analysis")
-        sorting.requests.append(text)
+        sorting.requests.append(site.card)
         return ()
     if head in OUTPUTS:
         sorting.pass_over(number, OUTPUTS[head])
-        sorting.requests.append(text)
+        sorting.requests.append(site.card)
         return ()
     if head in WITHOUT_EFFECT:
         sorting.pass_over(number, head)
