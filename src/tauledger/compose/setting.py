@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import re
 from collections.abc import Iterable
 
 import numpy as np
@@ -19,6 +20,8 @@ from tauledger.record import Curves, DeviceFacts, DriveFacts, Figure, LoadFacts,
 # IEC 62368-1 ES1, IEC 61010-1: 60 V d.c. is the limit of what may be touched in dry conditions (from memory).
 HAZARDOUS_VOLT = 60.0
 LINES_FOR_SHARE = 0.01
+LIMITS = 0.005
+WORD = re.compile(r"(?<![\w.])(?:\w+\.)*[rR]\w*(?![\w(.])")
 SOURCES = ("voltage source", "current source")
 # By the first letter of a figure's symbol: i_c, v_ce, gm, r_o, c_pi, f_t.
 UNITS = {"i": "A", "v": "V", "g": "S", "r": "Ω", "c": "F", "f": "Hz"}
@@ -96,7 +99,8 @@ def curves(numbers: Numbers, explanation: Explanation) -> Curves | None:
 
 
 def source_lines(numbers: Numbers, explanation: Explanation, netlist: Netlist | None) -> tuple[SourceLine, ...]:
-    """Give the netlist's lines of the driven sources, the devices, and the parts with a share of a band edge."""
+    """Give the netlist's lines of the driven sources, the devices, the parts with a share of a band edge, and the
+    resistors in the working of every node that takes half a per cent of the sum of time constants."""
     if netlist is None or numbers.circuit is None:
         return ()
     names = {fact.source for fact in drive_facts(numbers)} | {device.name for device in numbers.devices}
@@ -104,6 +108,7 @@ def source_lines(numbers: Numbers, explanation: Explanation, netlist: Netlist | 
     for shares in (explanation.shares_high, explanation.shares_low):
         if shares is not None:
             names |= {owner_of[name] for name, share in shares.parts.items() if abs(share) >= LINES_FOR_SHARE}
+    names |= _resistors(explanation)
     places = [place(netlist, card, path) for card, path in _cards(numbers.circuit, names) if card >= 0]
     lines = {(at.file, at.line): at.text for at in places}
     return tuple(SourceLine(file, line, text) for (file, line), text in sorted(lines.items()))
@@ -133,6 +138,14 @@ def _series(numbers: Numbers, nodes: tuple[str, ...]) -> float | None:
         if len(beside) == 1 and beside[0].kind == "conductance" and not beside[0].label:
             return 1.0 / beside[0].value
     return None
+
+
+def _resistors(explanation: Explanation) -> set[str]:
+    """Give the words of the limiting resistances; those that are no cards name nothing in a netlist."""
+    nodes = [node for node in explanation.hand.nodes if node.in_path] if explanation.hand else []
+    least = LIMITS * math.fsum(abs(node.time_constant_s) for node in nodes)
+    limiting = [line for node in nodes if abs(node.time_constant_s) >= least for line in node.lines]
+    return {word for line in limiting for term in line.resistance.resistances for word in WORD.findall(term.name)}
 
 
 def _cards(circuit: Circuit, names: set[str]) -> list[tuple[int, int]]:

@@ -11,6 +11,7 @@ from typing import Literal
 from msgspec import Struct
 
 from tauledger.record import CauseFacts, Review
+from tauledger.report.charts.bars import bars_text
 from tauledger.report.drawing.stage import MOST_STAGES, drawable
 from tauledger.report.sentences import (
     Answer,
@@ -25,7 +26,7 @@ from tauledger.report.sentences import (
     plain,
     sentence,
 )
-from tauledger.report.tables import lower, outside, roots, setting, upper, way
+from tauledger.report.tables import helps, lower, outside, roots, setting, upper, way
 from tauledger.report.tables.grid import Grid
 from tauledger.report.tables.working import Lines, working
 from tauledger.report.wording import EDGE, fraction, move, withheld
@@ -102,6 +103,7 @@ def document(review: Review) -> Document:
         _way(review),
         _bode(review),
         _causes(review),
+        _helps(review),
         _own(review),
         _lower(review),
         _stages(review),
@@ -156,15 +158,21 @@ def _budget(review: Review) -> Section:
         "budget",
         "The time-constant budget of the upper edge",
         tuple(blocks),
-        ("Signal node", "R", "Time constant", "Miller factor", "1 pF more"),
+        ("Signal node", "R", "Time constant", "Miller factor", "1 pF more", *_charges(review)),
     )
+
+
+def _charges(review: Review) -> tuple[str, ...]:
+    """Give the terms of a bipolar transistor's capacitances that no schematic shows."""
+    said = (("c_bx", "C_bx"), ("cexbc", "dQ_be/dV_bc"))
+    return tuple(term for label, term in said if any(part.name == f"{part.owner}.{label}" for part in review.parts))
 
 
 def _time(review: Review) -> Section:
     picture = Picture(
         "time",
         "R·C of every capacitance that matters, by hand above exact, under the node where it counts most. With "
-        "those too small to show the bars add up to the sum of time constants.",
+        "those too small to show the bars add up to the sum of time constants." + bars_text(review),
     )
     return Section("time", "Where the time goes", (picture,) if upper.counting_nodes(review) else ())
 
@@ -174,8 +182,8 @@ def _shares(review: Review) -> Section:
         return Section("shares", "", ())
     picture = Picture(
         "shares",
-        "Share of f_H, exact, at the edge itself. What takes most time at low frequency need not have "
-        "the largest share.",
+        "Share of f_H, exact, taken at the edge itself. The order may differ from that of the time constants above, "
+        "which hold at mid-band: between there and f_H the gain that multiplies a capacitance falls.",
     )
     return Section("shares", "Whose capacitance sets f_H", (picture, upper.shares(review)), ("Share", "Recomputed"))
 
@@ -189,7 +197,9 @@ def _way(review: Review) -> Section:
         if methods.rows:
             blocks.append(Folded(methods.caption, (methods,)))
     title = "From paper to simulation"
-    return Section("way", title, tuple(blocks), ("Lowest node alone", "Sum of time constants", "σ"))
+    return Section(
+        "way", title, tuple(blocks), ("Slowest node alone", "Sum of time constants", "Coefficients b₁, b₂", "σ")
+    )
 
 
 def _bode(review: Review) -> Section:
@@ -197,7 +207,9 @@ def _bode(review: Review) -> Section:
         return Section("bode", "", ())
     caption = (
         "Magnitude and phase over frequency; dotted lines at the band edges, poles × and zeros ○ at the foot of the "
-        "magnitude, named as in the table of poles and zeros."
+        "magnitude, named as in the table of poles and zeros. Dashed, by hand: mid-band gain with a pole of its own "
+        "for every node and every capacitor that counts, without zeros and without the load of one on the other; it "
+        "serves near the band, and far from it is off by tens of dB. Phase: of the output against the drive at 0°."
     )
     return Section("bode", "Frequency response", (Picture("bode", caption),), ("Pole, zero",))
 
@@ -209,7 +221,10 @@ def _causes(review: Review) -> Section:
     kept = _items([cause for cause in review.causes if cause.on_paper], review)
     blocks: list[Block] = [Items(differ) if differ else Prose("Nothing of note above 2 %.")]
     if kept:
-        blocks += [Prose("What paper must not leave out; the figures by hand here have it:"), Items(kept)]
+        blocks += [
+            Prose("The figures by hand here take the following into account; paper that leaves it out is off by:"),
+            Items(kept),
+        ]
     return Section("causes", "Why paper and simulation differ", tuple(blocks))
 
 
@@ -218,6 +233,10 @@ def _items(causes: Iterable[CauseFacts], review: Review) -> tuple[Item, ...]:
         Item(f"{EDGE.get(cause.quantity, cause.quantity)} {move(cause.effect)}", cause_text(cause, review))
         for cause in causes
     )
+
+
+def _helps(review: Review) -> Section:
+    return Section("helps", "What would help", (helps.what_would_help(review),) if review.helps else ())
 
 
 def _own(review: Review) -> Section:
@@ -253,7 +272,9 @@ def _stages(review: Review) -> Section:
         caption = (
             "The small-signal circuit of the hand analysis, stage by stage: at every node its resistance and its "
             "capacitances with their Miller part, R_Th the resistance at the input. Gm·v, with Gm = gain over R, gives "
-            "the gain in the table."
+            "the gain in the table. Where the node is marked inside, R is that behind the series resistance of the "
+            "device, and Gm the gain over that R; a capacitance with “at … Ω” faces that one instead, and counts "
+            "in the C of the next drawing as R·C over R."
         )
         if len(drawn) == MOST_STAGES < len(review.stages):
             caption += f" Drawn: the first {len(drawn)} nodes of {len(review.stages)}."
@@ -273,8 +294,14 @@ def _devices(review: Review) -> Section:
 def _roots(review: Review) -> Section:
     if not roots.near_roots(review):
         return Section("roots", "", ())
-    caption = "Poles × and zeros ○ in the s-plane. Each circle is one decade farther out; the angle is true."
-    return Section("roots", "Poles and zeros", (Picture("plane", caption), roots.roots_table(review)))
+    # Real roots alone are one line, which the frequency response shows better.
+    pairs = any(root.imag_hz for root in roots.near_roots(review))
+    caption = (
+        "Poles × and zeros ○ in the s-plane. Each circle is one decade farther out, so that DC itself lies beyond the "
+        "innermost one; the angle is true."
+    )
+    picture = (Picture("plane", caption),) if pairs else ()
+    return Section("roots", "Poles and zeros", (*picture, roots.roots_table(review)))
 
 
 def _lines(review: Review) -> Section:

@@ -26,8 +26,10 @@ if TYPE_CHECKING:
 _MINUS = re.compile(r"(?<![\w.⁻-])-(?=\d)")
 # The symbols of the trade, not the names of the user: "f_H", "C_μ", "r_π", "R_E", but not "v_in".
 _SYMBOL = re.compile(
-    r"\b([CIVRrfgQ])_(H|L|T|C|D|E|B|G|S|CE|DS|GS|Th|o|b|e|c|s|d|π|μ|bx|be|bc|ds|gs|gd|sb|db|gb|mb|sub)(?!\w)"
+    r"(?<![\w.])(d?[CIVRrfgQ]|G(?=_m))_(H|L|T|C|D|E|B|G|S|CE|DS|GS|Th|o|b|e|c|s|d|m|π|μ|bx|be|bc|ds|gs|gd|sb|db|gb|mb|sub)"
+    r"(?!\w)"
 )
+_COEFFICIENT = re.compile(r"\bb([₁₂])")
 
 
 class Drawn(Struct, frozen=True):
@@ -88,7 +90,8 @@ def typeset(text: str) -> Markup:
     from markupsafe import Markup, escape
 
     joined = BEFORE_A_UNIT.sub("\u00a0", _MINUS.sub("−", text))
-    return Markup(_SYMBOL.sub(r"\1<sub>\2</sub>", str(escape(joined))))
+    symbols = _SYMBOL.sub(r"\1<sub>\2</sub>", str(escape(joined)))
+    return Markup(_COEFFICIENT.sub(lambda found: f"<i>b</i><sub>{'₁₂'.index(found.group(1)) + 1}</sub>", symbols))
 
 
 def subscripted(svg: str) -> str:
@@ -116,6 +119,10 @@ def _pictures(name: str, review: Review) -> tuple[Drawn, ...]:
     from tauledger.report.charts.plane import plane_chart
     from tauledger.report.charts.way import way_chart
 
-    draw = {"time": time_chart, "shares": share_chart, "way": way_chart, "bode": bode_chart, "plane": plane_chart}
-    svg = draw[name](review)
-    return (Drawn("", subscripted(svg)),) if svg else ()
+    if name == "plane":
+        both = plane_chart(review)
+    else:
+        draw = {"time": time_chart, "shares": share_chart, "way": way_chart, "bode": bode_chart}[name]
+        both = draw(review).replace('class="chart"', 'class="chart wide"', 1)
+        both += draw(review, narrow=True)
+    return (Drawn("", subscripted(both)),) if both else ()

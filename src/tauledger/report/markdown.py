@@ -16,6 +16,7 @@ _BREAK = re.compile(r"\s*[\r\n]+\s*")
 # could open emphasis.
 _MARKUP = re.compile(r"[\\`*\[\]<>|~$]|(?<!\w)_|_(?!\w)|(?<!&)#(?=\w)|@(?=\w)|&(?=#?\w+;)")
 _AS_NUMBER = "<>&@#$|"
+INDENT = {"place": "&emsp;", "part": "&emsp;&emsp;"}
 FOLDED = ("devices", "roots", "lines", "proof", "trust")
 
 
@@ -85,8 +86,8 @@ def _table(grid: Grid) -> Iterator[str]:
     yield "|" + "|".join("---:" if column.align == "r" else "---" for column in grid.columns) + "|"
     for row in grid.rows:
         cells = [escape(cell) for cell in row.cells]
-        if row.kind == "part":
-            cells[0] = f"&emsp;{cells[0]}"
+        if row.kind in INDENT:
+            cells[0] = f"{INDENT[row.kind]}{cells[0]}"
         elif row.kind == "sum":
             cells = [f"**{cell}**" if cell else "" for cell in cells]
         yield "| " + " | ".join(cells) + " |"

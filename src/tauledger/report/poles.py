@@ -7,7 +7,7 @@ from collections.abc import Mapping, Sequence
 
 from tauledger.record import PoleFacts, Review, ZeroFacts
 from tauledger.report.layout import HEADING, Block, Prose, Section
-from tauledger.report.wording import move, number, owners_text, part_titles
+from tauledger.report.wording import coefficients, move, number, owners_text, part_titles
 
 _POLES = 6
 _NEAR, _FAR = 5.0, 50.0
@@ -101,7 +101,7 @@ def _about(pole: PoleFacts, review: Review, titles: Mapping[str, str]) -> str:
     if pole.real_hz > 0.0:
         told.append("right half-plane: unstable")
     if pole.hand_hz is not None:
-        formula = f" ({pole.hand_formula})" if pole.hand_formula else ""
+        formula = f" ({coefficients(pole.hand_formula)})" if pole.hand_formula else ""
         told.append(f"hand {number(pole.hand_hz, 'Hz')}{formula}")
     if pole.effect is not None and abs(pole.effect) >= _EFFECT_SHOWN:
         low, high = _band(review)

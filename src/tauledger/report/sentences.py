@@ -8,8 +8,11 @@ import re
 from msgspec import Struct
 
 from tauledger.record import CauseFacts, EdgeFacts, NodeRow, NoteFacts, PartRow, Review
+from tauledger.report.lower import in_parallel
+from tauledger.report.tables.helps import change, kind
 from tauledger.report.tables.setting import output_text
-from tauledger.report.tables.upper import counting_nodes, term_seconds, whole_s
+from tauledger.report.tables.upper import counting_nodes, places, term_seconds, whole_s
+from tauledger.report.tables.way import method_title
 from tauledger.report.wording import (
     AGREEMENT_WARNS,
     EDGE,
@@ -18,6 +21,7 @@ from tauledger.report.wording import (
     network_rejected,
     nominal,
     number,
+    part_title,
     part_titles,
     part_unit,
     retitled,
@@ -25,10 +29,12 @@ from tauledger.report.wording import (
     withheld,
 )
 
+# Effects on an edge below one, and on the gain below the other, are no help and no cost.
+WORTH_TELLING, UNSEEN = 0.005, 5e-4
 _DECIBEL = {"V/V": "dB", "A/A": "dB", "ohm": "dBΩ", "Ω": "dBΩ", "S": "dBS"}
 _RAISED = str.maketrans("-0123456789", "⁻⁰¹²³⁴⁵⁶⁷⁸⁹")
 _INNER = re.compile(r"\b[cC]_(?:pi|mu)\b")
-ESTIMATE = "This is an estimate; it does not replace measuring the board."
+ESTIMATE = "All of it rests on the models in the netlist: an estimate, which does not replace measuring the board."
 
 
 class KeyFigure(Struct, frozen=True):
@@ -89,8 +95,8 @@ def key_figures(review: Review) -> tuple[KeyFigure, ...]:
             reaches = label.startswith("Lower") and midband.from_hz == 0.0
             figures.append(KeyFigure(label, "none", "the gain holds down to DC" if reaches else "no fall of 3 dB"))
             continue
-        alone = "lowest node" if label.startswith("Upper") else "highest capacitor"
-        by_hand = f"{alone} by hand {number(edge.hand_hz, 'Hz')}" if edge.hand_hz is not None else "no hand estimate"
+        alone = "slowest node alone" if label.startswith("Upper") else "highest edge of a capacitor alone"
+        by_hand = f"by hand {number(edge.hand_hz, 'Hz')}, {alone}" if edge.hand_hz is not None else "no hand estimate"
         differs = f" ({move(edge.difference)})" if edge.hand_hz is not None and edge.difference is not None else ""
         figures.append(KeyFigure(label, number(_hz(edge), "Hz"), by_hand + differs))
     if review.agreement is None:
@@ -115,6 +121,9 @@ def answers(review: Review) -> tuple[Answer, ...]:
     limit = _what_limits(review)
     if limit:
         told.append(Answer("What limits the bandwidth?", limit))
+    lower = _what_sets_the_lower_edge(review)
+    if lower:
+        told.append(Answer("What sets the lower edge?", lower))
     agrees = _does_paper_agree(review)
     if agrees:
         told.append(Answer("Does paper agree?", agrees))
@@ -134,7 +143,7 @@ def drive_sentence(review: Review) -> str:
     loads = review.output.load
     load = " ‖ ".join(f"{part.name} {nominal(part.value, part_unit(part.kind))}" for part in loads)
     loaded = f", loaded with {load}" if load else ", without a load to ground"
-    return f"{' and '.join(drives) or 'nothing'} drives; the output is {output_text(review.output)}{loaded}."
+    return f"Driven by {' and '.join(drives) or 'nothing'}; output {output_text(review.output)}{loaded}."
 
 
 def limiting_node(review: Review) -> NodeRow | None:
@@ -196,9 +205,14 @@ def _what_limits(review: Review) -> str:
         return ""
     whole = whole_s(review)
     part = (node.time_constant_s or 0.0) / whole if whole else math.nan
+    where = places(node)
+    inner = f" at the {where[0].node} the device," if where and where[0].node != node.name else ""
+    outer = next((line for line in where[1:] if line.node == node.name), None)
+    if inner and outer is not None:
+        inner += f" and {number(outer.resistance_hand_ohm, 'Ω')} at {node.name} itself"
     text = (
         f"{sentence(node.title)[:-1]}: R {number(node.resistance_hand_ohm, 'Ω')} by hand "
-        f"({number(node.resistance_exact_ohm, 'Ω')} exact), C {number(node.capacitance_f, 'F')}, "
+        f"({number(node.resistance_exact_ohm, 'Ω')} exact){inner}, C {number(node.capacitance_f, 'F')}, "
         f"R·C {number(node.time_constant_s, 's')}, which is {fraction(part)} of the sum over all nodes."
     )
     terms = node.working.capacitances if node.working else ()
@@ -211,18 +225,46 @@ def _what_limits(review: Review) -> str:
     return text
 
 
+def _what_sets_the_lower_edge(review: Review) -> str:
+    if review.f_low is None or not review.f_low.exact_hz:
+        return ""
+    groups = in_parallel([part for part in review.parts if part.share.f_low is not None and part.edge_hz is not None])
+    if not groups:
+        return ""
+
+    def taken(group: list[PartRow]) -> float:
+        return math.fsum(part.share.f_low or 0.0 for part in group)
+
+    group = max(groups, key=taken)
+    part = group[0]
+    names = " ‖ ".join(part_title(one.name, one.owner) for one in group)
+    ends = " to ".join("ground" if node == "0" else node for node in part.nodes)
+    value = nominal(math.fsum(one.value for one in group), part_unit(part.kind))
+    ohm = part.resistance_exact_ohm if part.resistance_hand_ohm is None else part.resistance_hand_ohm
+    zero = "" if not part.zero_hz else f", with a zero at {number(part.zero_hz, 'Hz')}"
+    text = (
+        f"{names}, {value} from {ends}, has a share of {fraction(taken(group))}: with R {number(ohm, 'Ω')} its edge "
+        f"alone is {number(part.edge_hz, 'Hz')}{zero}."
+    )
+    best = next((e for e in review.estimates if e.edge == "f_low" and e.recommended), None)
+    if best is not None and best.hz is not None and best.difference is not None:
+        gives = f"{number(best.hz, 'Hz')}, {move(best.difference)}"
+        text += f" The method to use here, {method_title(best.method)}, gives {gives}."
+    return text
+
+
 def _does_paper_agree(review: Review) -> str:
     if review.f_high is None or review.f_high.hand_hz is None:
         return ""
     against = "simulation" if review.f_high.simulated_hz is not None else "exact value"
     alone = f"{number(review.f_high.hand_hz, 'Hz')}, {move(review.f_high.difference)} against the {against}"
-    text = f"The lowest node alone gives {alone}"
+    text = f"By hand, the slowest node alone gives {alone}"
     summed = next((e for e in review.estimates if e.edge == "f_high" and e.method == "sum of time constants"), None)
     if summed is not None and summed.hz is not None and summed.difference is not None:
         text += f"; the sum of time constants gives {number(summed.hz, 'Hz')}, {move(summed.difference)}"
     best = next((e for e in review.estimates if e.edge == "f_high" and e.recommended), None)
     if best is not None and best.method != "sum of time constants" and best.difference is not None:
-        text += f"; the method to use here, {best.method}, {move(best.difference)}"
+        text += f"; the method to use here, {method_title(best.method)}, {move(best.difference)}"
     text += "."
     differ = (cause for cause in review.causes if not cause.on_paper)
     cause = next((cause for cause in differ if EDGE.get(cause.quantity, cause.quantity) == "f_H"), None)
@@ -235,6 +277,8 @@ def _what_helps(review: Review) -> str:
     exact = review.f_high.exact_hz if review.f_high else None
     if not exact:
         return ""
+    if review.helps:
+        return _what_helps_most(review, exact)
     titles = part_titles(review.parts)
 
     def gain(part: PartRow) -> float:
@@ -253,6 +297,25 @@ def _what_helps(review: Review) -> str:
     if card is not None and card is not best and gain(card) > 0.0:
         text += f" Of the parts on the board it is {titles[card.name]}: {move(gain(card))}."
     return text
+
+
+def _what_helps_most(review: Review, exact: float) -> str:
+    """Name of each kind of element the one of which 10 % less or more raises f_H most, with what it costs in gain."""
+    told = []
+    for which, said in (("free", "leaves the bias alone"), ("bias", "moves the bias too"), ("device", "in a device")):
+        best = max(
+            (one for one in review.helps if kind(one) == which and one.f_high),
+            key=lambda one: one.f_high or 0.0,
+            default=None,
+        )
+        if best is None or (best.f_high or 0.0) < WORTH_TELLING:
+            continue
+        rerun = change(best.f_high_rerun_hz, exact)
+        effect, gain = (best.f_high, best.gain) if rerun is None else (rerun, best.gain_rerun)
+        how = "to first order" if rerun is None else f"to {number(best.f_high_rerun_hz, 'Hz')}, recomputed"
+        cost = f"gain {move(gain)}" if abs(gain or 0.0) >= UNSEEN else "gain unchanged"
+        told.append(f"{part_title(best.name, best.owner)} {move(effect)} ({how}; {cost}; {said})")
+    return f"10 % less of one element raises f_H: {', '.join(told)}." if told else ""
 
 
 def _largest_part(node: NodeRow, review: Review) -> str:

@@ -6,7 +6,7 @@ import math
 
 from tauledger.record import DeviceFacts, DriveFacts, EdgeFacts, MidbandFacts, OutputFacts, Review, Stage
 from tauledger.report.layout import STRONG, Block, Prose, Row, Section, Table
-from tauledger.report.wording import NO_NUMBER, move, nominal, number, part_unit, symbol
+from tauledger.report.wording import NO_NUMBER, figure_symbols, move, nominal, number, part_unit
 
 _DECIBEL = {"V/V": "dB", "A/A": "dB", "ohm": "dBΩ", "Ω": "dBΩ", "S": "dBS"}
 _FIGURES_A_LINE = 9
@@ -52,11 +52,11 @@ def operating_points(review: Review, *, verbose: bool = False) -> Section:
     blocks: list[Block] = []
     groups: dict[tuple[str, ...], list[DeviceFacts]] = {}
     for device in review.devices:
-        groups.setdefault(tuple(figure.symbol for figure in device.figures), []).append(device)
+        groups.setdefault(figure_symbols(device, review.parts), []).append(device)
     for symbols, devices in groups.items():
         for start in range(0, max(len(symbols), 1), _FIGURES_A_LINE):
             part = slice(start, start + _FIGURES_A_LINE)
-            head = ("BIAS" if not blocks else "", *map(symbol, symbols[part]))
+            head = ("BIAS" if not blocks else "", *symbols[part])
             rows = tuple(
                 Row((_device(device), *(number(f.value, f.unit, 3) for f in device.figures[part])))
                 for device in devices

@@ -15,32 +15,52 @@ TERMS = {
         "the netlist nodes that are one at mid-band, joined by coupling capacitors; a transistor's inner node "
         "belongs to its terminal."
     ),
-    "R": "the resistance that a capacitance at the node faces, looking into everything connected there.",
+    "R": (
+        "the resistance that a capacitance at the node faces, looking into everything connected there. Behind the "
+        "series resistance of a transistor’s base, collector or emitter it is another than at the node outside; the "
+        "rows “at …” say which place it belongs to."
+    ),
     "Time constant": "R·C of one node. The larger it is, the lower the frequency where the node stops following.",
     "Miller factor": (
-        "a capacitance between two nodes that move against each other counts (1 − K) times at the first; K is "
-        "the gain from there to its other end."
+        "a capacitance between two nodes counts (1 − K) times at the first, K being the gain from there to its other "
+        "end: more than once where the two move against each other, less than once where they move together."
     ),
     "1 pF more": "what one more picofarad from that node to ground, a probe or a longer trace, does to f_H.",
     "Share": (
         "how much of f_H one capacitance decides: a share of 40 % means that 1 % less of it raises f_H by "
-        "about 0.4 %. Exact, and all shares together make 100 %. A negative share speeds up."
+        "about 0.4 %. Exact, and all shares together make 100 %. A negative share: more of it raises f_H."
     ),
-    "Lowest node alone": "the estimate that takes the largest time constant and forgets the others.",
+    "Slowest node alone": "the estimate that takes the largest time constant and forgets the others.",
     "Sum of time constants": (
         "the estimate 1/(2π·Σ R·C). It takes every node and stays a little below the truth as long as the "
         "poles are real."
+    ),
+    "Coefficients b₁, b₂": (
+        "the gain falls as 1/(1 + b₁·s + b₂·s² + …) above mid-band. b₁ is the exact sum of all time constants, in s; "
+        "1/b₁ and b₁/b₂ are angular frequencies, in Hz divided by 2π. They have nothing to do with a node called b1."
     ),
     "σ": (
         "how strongly the capacitances load each other: 1 means not at all, a small number that the poles "
         "have moved far apart."
     ),
-    "Pole, zero": "frequencies that shape the response: the gain begins to fall at a pole and to rise at a zero.",
+    "Pole, zero": (
+        "where the slope of the gain changes, going up in frequency: by 20 dB a decade downwards at each pole, upwards "
+        "at each zero. Poles below mid-band therefore end the rise of the gain that zeros at DC began."
+    ),
     "Edge alone": "1/(2π·R·C) of one capacitor with all the others taken as shorts.",
     "Bypass zero": "below it a bypass capacitor no longer shorts its resistor and the gain levels off.",
     "gm, r_π, r_o, C_π, C_μ, f_T": (
         "transconductance, input and output resistance, base-emitter and base-collector capacitance, and the "
         "frequency where the current gain is one."
+    ),
+    "C_bx": (
+        "the part of the base-collector capacitance that lies outside the base resistance (1 − XCJC of the model); "
+        "C_μ is the part inside. The budget has them apart, for they face different resistances; C_μ + C_bx is what a "
+        "data sheet gives."
+    ),
+    "dQ_be/dV_bc": (
+        "a transcapacitance: base-emitter charge that follows the base-collector voltage, because the transit time "
+        "does. It is no capacitance between two nodes, so paper leaves it out; it may be negative."
     ),
     "gm, g_mb, r_o, C_gs, C_gd, f_T": (
         "transconductance from gate and from body, output resistance, gate-source and gate-drain capacitance, and the "

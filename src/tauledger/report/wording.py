@@ -7,7 +7,7 @@ import re
 from collections.abc import Iterable, Mapping
 
 from tauledger.quantity import engineering, percent
-from tauledger.record import Owner, PartRow, Review
+from tauledger.record import DeviceFacts, Owner, PartRow, Review
 
 _UNITS = {"ohm": "Ω"}
 _GREEK = {"pi": "π", "mu": "μ", "tau": "τ", "beta": "β"}
@@ -15,6 +15,10 @@ _RATIOS = ("", "V/V", "A/A")
 _PART_UNIT = {"capacitance": "F", "transcapacitance": "F", "inductance": "H", "C": "F", "L": "H", "R": "Ω"}
 _PART_UNIT |= {"mutual inductance": "H"}
 
+# A coefficient stands after a fraction bar or a product, before "/b2", or after the word; a node of that name does not.
+_COEFFICIENT = re.compile(
+    r"(?:(?<=[/·])|(?<=coefficients )|(?<=coefficients b1, ))b([12])\b|\bb(1)(?=/(?:b2\b|\(2π·b2\b))"
+)
 EDGE = {"f_high": "f_H", "f_low": "f_L"}
 
 SOLVED = "†"
@@ -66,9 +70,7 @@ def fraction(value: float | None) -> str:
 
 
 def share(value: float | None) -> str:
-    """Word a share of f_H: capacitance that lowers it as "64 %", that raises it as "speeds up, 6.0 %"."""
-    if value is not None and value <= -_NOTHING:
-        return f"speeds up, {fraction(-value)}"
+    """Write a share of a band edge: "64 %"; negative, "-6.0 %", where more of the part widens the band."""
     return fraction(value)
 
 
@@ -85,6 +87,17 @@ def symbol(label: str) -> str:
     if head == "f":
         return f"f_{tail.upper()}"
     return f"{head}_{tail}"
+
+
+def figure_symbols(device: DeviceFacts, parts: Iterable[PartRow]) -> tuple[str, ...]:
+    """Write the symbols of a device's figures; where it has C_bx, C_μ of the operating point is the sum of both."""
+    split = any(part.name == f"{device.name}.c_bx" for part in parts)
+    return tuple("C_μ+bx" if split and figure.symbol == "c_mu" else symbol(figure.symbol) for figure in device.figures)
+
+
+def coefficients(text: str) -> str:
+    """Set the coefficients of the denominator apart from nodes of the same name: "1/(2π·b1)" → "1/(2π·b₁)"."""
+    return _COEFFICIENT.sub(lambda found: "b₂" if found.group(1) == "2" else "b₁", text)
 
 
 def part_title(name: str, owner: str) -> str:
@@ -106,6 +119,7 @@ def part_titles(parts: Iterable[PartRow]) -> Mapping[str, str]:
 
 def retitled(text: str, parts: Iterable[PartRow]) -> str:
     """Write "Q1.c_mu" inside a sentence as the tables do: "C_μ of Q1"."""
+    text = coefficients(text)
     inner = {part.name: part_title(part.name, part.owner) for part in parts if part.name != part.owner}
     if not inner:
         return text

@@ -9,7 +9,7 @@ from msgspec import Struct
 
 from tauledger.record import PartRow, Review
 from tauledger.report.charts.style import blank, light, marked, quiet, styled, to_svg
-from tauledger.report.tables.upper import by_share, counting_nodes, term_seconds, whole_s
+from tauledger.report.tables.upper import by_share, counted, counting_nodes, term_seconds, whole_s
 from tauledger.report.wording import fraction, number, part_titles
 from tauledger.report.working import node_title
 
@@ -65,6 +65,26 @@ def time_groups(review: Review) -> tuple[TimeGroup, ...]:
     return tuple(groups)
 
 
+def bars_text(review: Review) -> str:
+    """Say how the largest bar that stands for two nodes adds up: " C_μ of Q2: 261.0 ns at c1 and …"; empty for none."""
+    shown = {bar.part for group in time_groups(review) for bar in group.bars}
+    ends: dict[str, list[tuple[float, str]]] = {}
+    for node in counted(review):
+        for term in node.working.capacitances if node.working else ():
+            if term.part in shown:
+                ends.setdefault(term.part, []).append((term_seconds(term, node), node.name))
+    both = [(part, told) for part, told in ends.items() if len(told) > 1]
+    if not both:
+        return ""
+    part, told = max(both, key=lambda entry: math.fsum(seconds for seconds, _ in entry[1]))
+    pieces = " and ".join(f"{number(seconds, 's')} at {name}" for seconds, name in told)
+    together = number(math.fsum(seconds for seconds, _ in told), "s")
+    return (
+        f" A capacitance between two nodes has one bar for both its ends: {part_titles(review.parts)[part]} takes "
+        f"{pieces} in the table, {together} together."
+    )
+
+
 def _exact_s(part: PartRow, review: Review) -> float | None:
     """Give R·C of a part; in a balanced circuit, where its R holds for one half alone, its part of the group delay."""
     second = {member for node in review.nodes if node.second for member in node.members}
@@ -75,7 +95,7 @@ def _exact_s(part: PartRow, review: Review) -> float | None:
     return part.weight * part.time_constant_s * (1.0 if is_its_own_image else 2.0)
 
 
-def time_chart(review: Review) -> str:
+def time_chart(review: Review, *, narrow: bool = False) -> str:
     """Draw time constants by hand and exact per capacitance, grouped by node, as SVG; empty where there are none."""
     groups, left = [], MOST_BARS
     for group in time_groups(review):
@@ -88,12 +108,16 @@ def time_chart(review: Review) -> str:
     biggest = max(max(abs(bar.hand_s), abs(bar.exact_s or 0.0)) for group in groups for bar in group.bars)
     scale, unit = _engineering(biggest)
     rows = sum(1 + len(group.bars) for group in groups)
+    from matplotlib.transforms import blended_transform_factory
+
     with styled():
-        figure = blank(0.75 + ROW_IN * rows + 0.1 * len(groups))
+        figure = blank(0.75 + ROW_IN * rows + 0.1 * len(groups), narrow=narrow)
         axes = figure.add_subplot()
         y, ticks, names = 0.0, [], []
         for group in groups:
-            axes.text(0.0, y, group.title, transform=axes.get_yaxis_transform(), weight="bold", va="center")
+            across = blended_transform_factory(figure.transFigure if narrow else axes.transAxes, axes.transData)
+            head = axes.text(0.0, y, group.title, transform=across, weight="bold", va="center", in_layout=not narrow)
+            head.set_fontsize(8.0 if narrow else 9.0)
             y += 0.95
             for bar in group.bars:
                 _pair(axes, y, bar, scale)
@@ -103,41 +127,50 @@ def time_chart(review: Review) -> str:
             y += 0.25
         axes.set_yticks(ticks, names)
         axes.set_ylim(y - 0.3, -0.6)
-        axes.set_xlim(min(0.0, *(bar.hand_s * scale for group in groups for bar in group.bars)), 1.22 * biggest * scale)
+        axes.set_xlim(
+            min(0.0, *(bar.hand_s * scale for group in groups for bar in group.bars)),
+            (1.9 if narrow else 1.32) * biggest * scale,
+        )
         axes.set_xlabel(f"R·C in {unit}")
         axes.grid(axis="x")
         axes.set_axisbelow(True)
         quiet(axes)
         _legend(axes)
         told = "; ".join(f"{bar.title} {number(bar.hand_s, 's', 3)}" for group in groups for bar in group.bars[:2])
-        return to_svg(figure, key="time", title=f"Time constant of every capacitance by hand and exact: {told}")
+        return to_svg(
+            figure, key="time", title=f"Time constant of every capacitance by hand and exact: {told}", narrow=narrow
+        )
 
 
-def share_chart(review: Review) -> str:
+def share_chart(review: Review, *, narrow: bool = False) -> str:
     """Draw the signed shares of f_H, largest first, as SVG; empty where there are none."""
     parts = [part for part in by_share(review) if abs(part.share.f_high or 0.0) >= WORTH_A_BAR][:MOST_BARS]
     if not parts:
         return ""
     titles = part_titles(review.parts)
     with styled():
-        figure = blank(0.7 + ROW_IN * max(len(parts), 2))
+        figure = blank(0.7 + ROW_IN * max(len(parts), 2), narrow=narrow)
         axes = figure.add_subplot()
         values = [100.0 * (part.share.f_high or 0.0) for part in parts]
         for y, (part, value) in enumerate(zip(parts, values, strict=True)):
             _share_bar(axes, y, part, value)
         low, high = min(0.0, *values, 0.0), max(0.0, *values, 0.0)
-        room = 0.16 * (high - low)
+        room = (0.3 if narrow else 0.16) * (high - low)
         axes.set_xlim(low, max(high + room, 0.25 * (high - low)))
         axes.set_ylim(len(parts) - 0.4, -0.6)
         axes.set_yticks(range(len(parts)), [titles[part.name] for part in parts])
         axes.axvline(0.0, color=light("ink"), linewidth=1.0)
-        signs = "per cent of f_H; to the left of zero: more of it speeds up" if low < 0.0 else "per cent of f_H"
+        signs = (
+            "per cent of f_H; to the left of zero: more of it raises f_H"
+            if low < 0.0 and not narrow
+            else "per cent of f_H"
+        )
         axes.set_xlabel(f"share, {signs}")
         axes.grid(axis="x")
         axes.set_axisbelow(True)
         quiet(axes)
         told = "; ".join(f"{titles[part.name]} {fraction(part.share.f_high)}" for part in parts[:4])
-        return to_svg(figure, key="shares", title=f"Share of each capacitance in f_H: {told}")
+        return to_svg(figure, key="shares", title=f"Share of each capacitance in f_H: {told}", narrow=narrow)
 
 
 def _pair(axes: Axes, y: float, bar: TimeBar, scale: float) -> None:
@@ -160,7 +193,7 @@ def _share_bar(axes: Axes, y: int, part: PartRow, value: float) -> None:
     else:
         drawn = axes.barh(y, value, 0.56, facecolor="none", edgecolor=light("faster"), hatch="\\\\\\\\", linewidth=1.1)
     drawn[0].set_gid(marked(part.name))
-    told = fraction(part.share.f_high) if value >= 0.0 else f"speeds up {fraction(abs(value) / 100.0)}"
+    told = fraction(part.share.f_high).replace("-", "−")
     # Left of its bar a text would run into the names.
     axes.annotate(told, (max(value, 0.0), y), (5, 0), textcoords="offset points", va="center", ha="left")
 

@@ -16,21 +16,27 @@ if TYPE_CHECKING:
 BELOW_DB = 70.0
 BEYOND = 300.0
 # Marks closer than this ratio have no room for both their names above them.
-NAME_NEEDS = 1.8
+NAME_NEEDS, NARROW_NEEDS = 1.8, 5.0
 DECIBEL = {"V/V": "dB", "A/A": "dB", "ohm": "dBΩ", "Ω": "dBΩ", "S": "dBS"}
 
 
-def bode_chart(review: Review) -> str:
+def bode_chart(review: Review, *, narrow: bool = False) -> str:
     """Draw magnitude and phase as SVG; empty where there are no curves."""
     curves = review.curves
     if curves is None or len(curves.frequency_hz) < 2:
         return ""
     first, last = _range(review, curves)
     with styled():
-        figure = blank(5.2)
+        figure = blank(5.2, narrow=narrow)
         upper, lower = figure.subplots(2, 1, sharex=True, height_ratios=(1.35, 1.0))
         lines = (
-            ("hand", "by hand", curves.hand_db, curves.hand_deg, {"linestyle": (0, (5, 2)), "linewidth": 1.5}),
+            (
+                "hand",
+                "by hand, a pole for each node",
+                curves.hand_db,
+                curves.hand_deg,
+                {"linestyle": (0, (5, 2)), "linewidth": 1.5},
+            ),
             (
                 "exact",
                 "exact",
@@ -59,15 +65,19 @@ def bode_chart(review: Review) -> str:
         lower.set_ylabel("phase in degrees")
         _degrees(lower)
         lower.set_xlabel("frequency")
-        _hertz(lower)
+        _hertz(lower, most=4 if narrow else 8)
         for axes in (upper, lower):
             axes.grid(axis="both")
             axes.set_axisbelow(True)
-        _edges(upper, lower, review)
-        _roots(upper, near_roots(review), first, last)
-        upper.legend(loc="lower left", bbox_to_anchor=(0.0, 1.0), ncols=3, frameon=False, borderpad=0.0)
+        _edges(upper, lower, review, narrow=narrow)
+        _roots(upper, near_roots(review), first, last, narrow=narrow)
+        upper.legend(
+            loc="lower left", bbox_to_anchor=(0.0, 1.0), ncols=1 if narrow else 3, frameon=False, borderpad=0.0
+        )
         told = ", ".join(f"{name} at {number(hz, 'Hz')}" for name, hz in _edge_places(review))
-        return to_svg(figure, key="bode", title=f"Magnitude and phase over frequency; {told or 'no band edges'}")
+        return to_svg(
+            figure, key="bode", title=f"Magnitude and phase over frequency; {told or 'no band edges'}", narrow=narrow
+        )
 
 
 def _range(review: Review, curves: Curves) -> tuple[float, float]:
@@ -106,11 +116,11 @@ def _degrees(axes: Axes) -> None:
     axes.yaxis.set_major_locator(MultipleLocator(step))
 
 
-def _hertz(axes: Axes) -> None:
+def _hertz(axes: Axes, *, most: int) -> None:
     from matplotlib.ticker import FuncFormatter, LogLocator, NullLocator
 
     first, last = axes.get_xlim()
-    every = 1 if math.log10(last / first) <= 8 else 2
+    every = math.ceil(math.log10(last / first) / most)
     axes.xaxis.set_major_locator(LogLocator(base=10.0**every))
     axes.xaxis.set_minor_locator(NullLocator())
     axes.xaxis.set_major_formatter(FuncFormatter(lambda hz, _: number(hz, "Hz", 1)))
@@ -125,7 +135,7 @@ def _edge_places(review: Review) -> list[tuple[str, float]]:
     return places
 
 
-def _edges(upper: Axes, lower: Axes, review: Review) -> None:
+def _edges(upper: Axes, lower: Axes, review: Review, *, narrow: bool) -> None:
     for name, hz in _edge_places(review):
         for axes in (upper, lower):
             axes.axvline(hz, color=light("muted"), linewidth=1.0, linestyle=(0, (1, 2)))
@@ -135,22 +145,27 @@ def _edges(upper: Axes, lower: Axes, review: Review) -> None:
         upper.annotate(
             f"{name} {number(hz, 'Hz')}",
             (hz, level),
-            (inwards, -7),
+            # Where the band is narrow on the page the two stand below each other.
+            (inwards, -22 if narrow and name == "f_H" else -7),
             textcoords="offset points",
             ha="left" if name == "f_L" else "right",
             va="top",
         )
 
 
-def _roots(axes: Axes, roots: tuple[Root, ...], first: float, last: float) -> None:
-    """Mark poles and zeros on two lines at the foot of the magnitude; names step aside where marks come close."""
+def _roots(axes: Axes, roots: tuple[Root, ...], first: float, last: float, *, narrow: bool) -> None:
+    """Mark poles and zeros on two lines at the foot of the magnitude; names step aside where marks come close.
+
+    On a small screen there is no room aside: of marks close to each other the first has its name.
+    """
     transform = axes.get_xaxis_transform()
     for is_pole, height in ((True, 0.045), (False, 0.17)):
         visible = [root for root in roots if root.is_pole is is_pole and first <= root.size_hz <= last]
         level, before = 0, 0.0
         for root in sorted(visible, key=lambda root: root.size_hz):
-            level = 1 - level if before and root.size_hz < NAME_NEEDS * before else 0
-            before = root.size_hz
+            close = before > 0.0 and root.size_hz < (NARROW_NEEDS if narrow else NAME_NEEDS) * before
+            level = 1 - level if close else 0
+            before = before if close and narrow else root.size_hz
             axes.plot(
                 [root.size_hz],
                 [height],
@@ -162,6 +177,8 @@ def _roots(axes: Axes, roots: tuple[Root, ...], first: float, last: float) -> No
                 color=light("ink"),
                 linestyle="none",
             )
+            if narrow and close:
+                continue
             sideways, upwards = ((0, 5), (7, -4))[level]
             axes.annotate(
                 root.name,

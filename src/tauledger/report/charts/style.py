@@ -31,14 +31,15 @@ PALETTE = {
     "accent": ("#2c4a3e", "#9fcdb8"),
     "warning": ("#9b1c1c", "#ff9d8f"),
 }
-WIDTH_IN = 7.6
+WIDTH_IN, NARROW_IN = 7.6, 3.7
 _FONT = ("DejaVu Sans",)
 _SALT = "tauledger"
 # What matplotlib writes into a picture of its own; a page has its own style and title.
 _STYLE = re.compile(r"<style.*?</style>", re.DOTALL)
 _METADATA = re.compile(r"<metadata>.*?</metadata>", re.DOTALL)
 _HEAD = re.compile(r"^.*?<svg[^>]*?viewBox=\"([^\"]*)\"[^>]*>", re.DOTALL)
-_IDENTIFIER = re.compile(r'\bid="([^"]*)"')
+# A name with a double quote in it stands in single ones.
+_IDENTIFIER = re.compile(r"""\bid=(?:"([^"]*)"|'([^']*)')""")
 _FONT_FAMILY = re.compile(r"(?<=font-family: )[^;\"]+")
 _MARK = "mark-"
 
@@ -84,11 +85,11 @@ def styled() -> Iterator[None]:
         yield
 
 
-def blank(height_in: float) -> Figure:
-    """Give an empty figure of the page's width."""
+def blank(height_in: float, *, narrow: bool = False) -> Figure:
+    """Give an empty figure of the page's width, or of that of a small screen with letters of the same size."""
     from matplotlib.figure import Figure
 
-    return Figure(figsize=(WIDTH_IN, height_in), layout="constrained")
+    return Figure(figsize=(NARROW_IN if narrow else WIDTH_IN, height_in), layout="constrained")
 
 
 def marked(part: str) -> str:
@@ -102,18 +103,20 @@ def quiet(axes: Axes) -> None:
     axes.tick_params(axis="y", length=0)
 
 
-def to_svg(figure: Figure, *, key: str, title: str) -> str:
+def to_svg(figure: Figure, *, key: str, title: str, narrow: bool = False) -> str:
     """Give a figure as an <svg> element for a page; ids are made its own with `key`.
 
-    title: what a reader who cannot see it is told.
+    title: what a reader who cannot see it is told. narrow: it is the one for a small screen.
     """
+    key = f"{key}-narrow" if narrow else key
+    kind = "chart narrow" if narrow else "chart"
     page = io.StringIO()
     nothing = {"Date": None, "Creator": None, "Format": None, "Type": None}
     figure.savefig(page, format="svg", metadata=nothing)
     text = _METADATA.sub("", _STYLE.sub("", page.getvalue()))
     text = _HEAD.sub(
         lambda found: (
-            f'<svg class="chart" viewBox="{found.group(1)}" role="img" aria-labelledby="{key}-title">'
+            f'<svg class="{kind}" viewBox="{found.group(1)}" role="img" aria-labelledby="{key}-title">'
             f'<title id="{key}-title">{escape(title)}</title>'
         ),
         text,
@@ -140,7 +143,7 @@ def _own_identifiers(text: str, key: str) -> str:
     used = set(re.findall(r'(?:href="|url\()#([^")]+)', text))
 
     def rename(found: re.Match[str]) -> str:
-        name = found.group(1)
+        name = found.group(1) or (found.group(2) or "").replace('"', "&quot;")
         if name.startswith(_MARK):
             return f'data-part="{name.removeprefix(_MARK)}"'
         if name in used:

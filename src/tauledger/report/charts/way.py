@@ -12,7 +12,7 @@ from tauledger.report.wording import move, number
 MOST_OF_RANGE = 0.25
 
 
-def way_chart(review: Review) -> str:
+def way_chart(review: Review, *, narrow: bool = False) -> str:
     """Draw the way from paper to simulation as SVG; empty where there is none."""
     told = way(review, "f_high")
     if not told:
@@ -23,7 +23,7 @@ def way_chart(review: Review) -> str:
     )
     heights = [step.hz * scale for step in told]
     with styled():
-        figure = blank(3.2)
+        figure = blank(3.2, narrow=narrow)
         axes = figure.add_subplot()
         low, high = min(heights), max(heights)
         room = MOST_OF_RANGE * (high - low) or 0.1 * high
@@ -40,7 +40,11 @@ def way_chart(review: Review) -> str:
             axes.annotate(
                 text, (k, heights[k]), offset, textcoords="offset points", ha="center", va="bottom" if above else "top"
             )
-        axes.set_xticks(range(len(told)), [textwrap.fill(step.title, 15) for step in told])
+        axes.set_xticks(
+            range(len(told)), [textwrap.fill(step.title, 8 if narrow else 15, break_long_words=False) for step in told]
+        )
+        if narrow:
+            axes.tick_params(axis="x", labelsize=7.0)
         axes.tick_params(axis="x", length=0)
         axes.set_xlim(-0.55, len(told) - 0.45)
         axes.set_ylim(max(0.0, low - 2.2 * room), high + 1.5 * room)
@@ -48,4 +52,4 @@ def way_chart(review: Review) -> str:
         axes.grid(axis="y")
         axes.set_axisbelow(True)
         words = "; ".join(f"{step.title} {number(step.hz, 'Hz')}" for step in told)
-        return to_svg(figure, key="way", title=f"Estimates of f_H: {words}")
+        return to_svg(figure, key="way", title=f"Estimates of f_H: {words}", narrow=narrow)

@@ -12,7 +12,7 @@ from itertools import pairwise
 from msgspec import Struct
 from msgspec.structs import replace
 
-from tauledger.record import NodeRow, Review, Stage
+from tauledger.record import CapacitanceTerm, NodeRow, Review, Stage
 from tauledger.report.charts.style import escape
 from tauledger.report.drawing.symbols import (
     capacitor_down,
@@ -26,7 +26,7 @@ from tauledger.report.drawing.symbols import (
     voltage_source,
     wire,
 )
-from tauledger.report.tables.upper import term_seconds
+from tauledger.report.tables.upper import places, term_seconds
 from tauledger.report.wording import number, part_titles
 
 TOP, BOTTOM = 50.0, 176.0
@@ -35,6 +35,7 @@ MOST_CAPACITORS = 3
 SMALL = 0.03
 MOST_STAGES = 24
 FAITHFUL = 0.1
+SAME_OHM = 0.005
 
 
 class Element(Struct, frozen=True):
@@ -150,7 +151,7 @@ def _shunts(pieces: list[str], x: float, node: NodeRow, elements: list[Element])
     """Hang the elements of a node between the rails from x on; gives where the next may start."""
     start = x
     pieces.append(dot(start, TOP))
-    pieces.append(text(start + 5, TOP - 17, node.name, kind="strong"))
+    pieces.append(text(start + 5, TOP - 17, _at(node), kind="strong"))
     for element in elements:
         x += 22.0
         symbol = resistor_down if element.kind == "resistor" else capacitor_down
@@ -165,6 +166,21 @@ def _shunts(pieces: list[str], x: float, node: NodeRow, elements: list[Element])
         pieces += [wire((start, TOP), (x, TOP))]
         x += COLUMN - 22.0
     return x
+
+
+def _own_ohm(term: CapacitanceTerm, node: NodeRow) -> float | None:
+    """Give the resistance that a capacitance faces where it is visibly another than the one drawn."""
+    farad, ohm = term.farad * term.factor, node.resistance_hand_ohm
+    if not farad or not ohm:
+        return None
+    own = term_seconds(term, node) / farad
+    return own if abs(own / ohm - 1.0) > SAME_OHM else None
+
+
+def _at(node: NodeRow) -> str:
+    """Name the place whose resistance is drawn: the node, or what lies inside a device behind it."""
+    where = places(node)
+    return where[0].node if where else node.name
 
 
 def _factor(factor: float) -> str:
@@ -189,10 +205,13 @@ def _elements(node: NodeRow, review: Review) -> list[Element]:
         counts = number(term.farad * term.factor, "F", 3)
         plain = abs(term.factor - 1.0) < 5e-4
         words = (counts,) if plain else (f"{number(term.farad, 'F', 3)} × {_factor(term.factor)}", f"= {counts}")
+        own = _own_ohm(term, node)
+        if own is not None:
+            words = (*words, f"at {number(own, 'Ω')}")
         elements.append(Element("capacitor", (titles.get(term.part, term.part), *words), term.part))
     rest = ordered[len(shown) :]
     if rest:
-        together = sum(term.farad * term.factor for term in rest)
+        together = sum(term_seconds(term, node) for term in rest) / (node.resistance_hand_ohm or 1.0)
         name = titles.get(rest[0].part, rest[0].part) if len(rest) == 1 else f"{len(rest)} smaller"
         elements.append(Element("capacitor", (name, number(together, "F", 3))))
     return elements

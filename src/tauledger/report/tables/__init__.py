@@ -3,6 +3,7 @@
 grid.py     the record of a table
 upper.py    time-constant budget, time constant and share of every capacitance
 working.py  one signal node worked out
+helps.py    what 10 % less of one element does to edges and gain
 lower.py    coupling and bypass capacitors
 roots.py    poles and zeros with the names that charts and table share
 way.py      estimates from the lowest node to the simulation, methods, reruns

@@ -15,11 +15,12 @@ class Column(Struct, frozen=True):
 
 
 class GridRow(Struct, frozen=True):
-    """One row. kind: "part" below the row that it belongs to, "sum" for a total. part: the part or node that it is
-    about, so that charts can be linked with it."""
+    """One row. kind: "place" and "part" below the row that they belong to, "sum" for a total.
+
+    part: the part or node that it is about, so that charts can be linked with it."""
 
     cells: tuple[str, ...]
-    kind: Literal["", "part", "sum"] = ""
+    kind: Literal["", "place", "part", "sum"] = ""
     part: str = ""
 
 

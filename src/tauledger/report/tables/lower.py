@@ -56,7 +56,13 @@ def lower_edge(review: Review) -> Grid:
     )
     solved = any(part.resistance_hand_ohm is None for part in lower_parts(review))
     notes = [f"{SOLVED} no hand rule fits: the exact resistance is used."] if solved else []
-    notes += [f"10 % less of {group[0].name} alone." for group in groups if len(group) > 1]
+    notes += [
+        f"{' ‖ '.join(part.name for part in group)}: 10 % less of {group[0].name} alone."
+        for group in groups
+        if len(group) > 1
+    ]
+    if any((part.share.f_low or 0.0) < 0.0 for part in lower_parts(review)):
+        notes.append("A negative share: more of that capacitor raises f_L.")
     return Grid("Coupling and bypass capacitors at the lower edge", heads, tuple(rows), " ".join(notes))
 
 

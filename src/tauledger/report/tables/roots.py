@@ -8,7 +8,7 @@ from msgspec import Struct
 
 from tauledger.record import PoleFacts, Review, ZeroFacts
 from tauledger.report.tables.grid import Column, Grid, GridRow
-from tauledger.report.wording import move, number, owners_text, part_titles
+from tauledger.report.wording import coefficients, move, number, owners_text, part_titles
 
 # Farther than this from the band a root moves nothing that a reader could measure.
 FAR = 50.0
@@ -124,7 +124,7 @@ def _quality(root: Root) -> str:
 def _by_hand(root: PoleFacts | ZeroFacts) -> str:
     if not isinstance(root, PoleFacts) or root.hand_hz is None:
         return ""
-    return number(root.hand_hz, "Hz") + (f" = {root.hand_formula}" if root.hand_formula else "")
+    return number(root.hand_hz, "Hz") + (f" = {coefficients(root.hand_formula)}" if root.hand_formula else "")
 
 
 def _does(root: Root, review: Review) -> str:

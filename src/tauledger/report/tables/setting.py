@@ -7,7 +7,8 @@ import re
 
 from tauledger.record import DeviceFacts, DriveFacts, OutputFacts, Review
 from tauledger.report.tables.grid import Column, Grid, GridRow
-from tauledger.report.wording import NO_NUMBER, fraction, nominal, number, part_unit, symbol
+from tauledger.report.tables.upper import counting_nodes, resistors_at
+from tauledger.report.wording import NO_NUMBER, figure_symbols, fraction, nominal, number, part_unit
 
 # More columns than these are wider than a page.
 FIGURES_A_TABLE = 9
@@ -72,14 +73,14 @@ def devices(review: Review) -> tuple[Grid, ...]:
     """Give every device at its operating point, devices with the same figures in one table."""
     groups: dict[tuple[str, ...], list[DeviceFacts]] = {}
     for device in review.devices:
-        groups.setdefault(tuple(figure.symbol for figure in device.figures), []).append(device)
+        groups.setdefault(figure_symbols(device, review.parts), []).append(device)
     grids = []
     for symbols, members in groups.items():
         tables = max(1, math.ceil(len(symbols) / FIGURES_A_TABLE))
         size = max(1, math.ceil(len(symbols) / tables))
         for start in range(0, max(len(symbols), 1), size):
             part = slice(start, start + size)
-            heads = (Column("Device", "l"), *map(Column, map(symbol, symbols[part])))
+            heads = (Column("Device", "l"), *map(Column, (_together(label) for label in symbols[part])))
             rows = tuple(
                 GridRow((_device(device), *(number(figure.value, figure.unit, 3) for figure in device.figures[part])))
                 for device in members
@@ -96,11 +97,36 @@ def source_lines(review: Review) -> Grid:
         owner = name.group().casefold() if name else ""
         rows.append(
             GridRow(
-                (f"{line.file}:{line.line}", line.text, _share(review, owner, "f_high"), _share(review, owner, "f_low"))
+                (
+                    f"{line.file}:{line.line}",
+                    line.text,
+                    _makes(review, owner),
+                    _share(review, owner, "f_high"),
+                    _share(review, owner, "f_low"),
+                )
             )
         )
-    heads = (Column("Line", "l"), Column("text", "l"), Column("share of f_H"), Column("share of f_L"))
-    return Grid("Lines of the netlist that matter", heads, tuple(rows))
+    heads = (
+        Column("Line", "l"),
+        Column("text", "l"),
+        Column("makes R at", "l"),
+        Column("share of f_H"),
+        Column("share of f_L"),
+    )
+    return Grid(
+        "Lines of the netlist that matter, and the resistors that make an R of the upper edge", heads, tuple(rows)
+    )
+
+
+def _makes(review: Review, owner: str) -> str:
+    """Name the nodes of the upper edge whose resistance a resistor makes."""
+    told = []
+    for node in counting_nodes(review):
+        lines = node.working.lines if node.working is not None else ()
+        terms = [term for line in lines for term in line.resistances]
+        if any(name.rsplit(".", 1)[-1].casefold() == owner for name in resistors_at(terms, review)):
+            told.append(node.name)
+    return ", ".join(told)
 
 
 def versions(review: Review) -> Grid:
@@ -112,7 +138,7 @@ def versions(review: Review) -> Grid:
     if review.netlist.sha256:
         rows.append(GridRow(("SHA-256 of all files read", review.netlist.sha256)))
     if review.netlist.read_past:
-        rows.append(GridRow(("Read past", review.netlist.read_past)))
+        rows.append(GridRow(("Cards read past: nothing here rests on them", review.netlist.read_past)))
     return Grid("Versions", (Column("", "l"), Column("", "l")), tuple(rows))
 
 
@@ -133,6 +159,10 @@ def sums(review: Review) -> Grid:
     return Grid("Sums that must come out the same two ways", heads, tuple(map(GridRow, rows)))
 
 
+def _together(label: str) -> str:
+    return "C_μ + C_bx" if label == "C_μ+bx" else label
+
+
 def _device(device: DeviceFacts) -> str:
     region = "" if device.region == "active" else f", {device.region}"
     return f"{device.name} {device.kind}{region}"
@@ -141,6 +171,7 @@ def _device(device: DeviceFacts) -> str:
 def _drive(drive: DriveFacts) -> str:
     amplitude = complex(drive.amplitude_real, drive.amplitude_imag)
     text = number(abs(amplitude), "A" if drive.kind == "current" else "V")
+    text += " AC, small-signal"
     angle = math.degrees(math.atan2(amplitude.imag, amplitude.real))
     if angle:
         text += f" at {angle:.4g}°"
@@ -156,7 +187,7 @@ def _plateau(review: Review) -> str:
         return f"{at}, the highest gain: there is no plateau"
     start = "DC" if midband.from_hz == 0.0 else number(midband.from_hz, "Hz", 3)
     end = "without upper limit" if midband.to_hz is None else f"to {number(midband.to_hz, 'Hz', 3)}"
-    return f"{at}; flat from {start} {end}"
+    return f"{at}; flat, with a slope of at most 2 dB a decade, from {start} {end}"
 
 
 def _share(review: Review, owner: str, edge: str) -> str:

@@ -3,9 +3,10 @@
 from __future__ import annotations
 
 import math
+import re
 from collections.abc import Iterable, Mapping
 
-from tauledger.record import CapacitanceTerm, NodeRow, PartRow, Review
+from tauledger.record import CapacitanceTerm, NodeRow, PartRow, ResistanceTerm, Review, WorkingLine
 from tauledger.report.tables.grid import Column, Grid, GridRow, columns
 from tauledger.report.wording import (
     NO_NUMBER,
@@ -14,12 +15,16 @@ from tauledger.report.wording import (
     fraction,
     move,
     number,
+    part_title,
     part_titles,
     share,
 )
 from tauledger.report.working import node_title
 
 PICOFARAD = 1e-12
+# A charge controlled from elsewhere below this part of the sum is not seen in four digits.
+_SEEN = 1e-3
+_NAME = re.compile(r"(?<![\w.])(?:\w+\.)*[rR]\w*(?![\w(.])")
 # Rows that take less of the sum stand apart, so that a reader of a large board sees what matters.
 MATTERS = 0.005
 WORTH_A_ROW = 0.002
@@ -53,7 +58,7 @@ def budget(review: Review) -> Grid:
     sums = review.budget.upper
     others = len(counted(review)) - len(nodes)
     if sums is not None and sums.path_sum_s is not None:
-        name = "Sum, nodes not shown included" if others else "Sum"
+        name = "Sum over all nodes of the signal path" if others else "Sum"
         cells = (name, "", "", "", number(sums.path_sum_s, "s"), _exact_sum(review), "100 %", "")
         rows.append(GridRow(cells, "sum"))
     solved = any(node.working is not None and node.working.source == "solved" for node in nodes)
@@ -61,8 +66,41 @@ def budget(review: Review) -> Grid:
         "Time-constant budget of the upper edge, by signal node",
         BUDGET_COLUMNS,
         tuple(rows),
-        f"{SOLVED} solved exactly: no hand rule fits this node." if solved else "",
+        " ".join(_remarks(nodes, review, solved=solved)),
     )
+
+
+def places(node: NodeRow) -> tuple[WorkingLine, ...]:
+    """Give the places that a row is made of where it is more than the node itself: inside a device, and the node."""
+    lines = node.working.lines if node.working is not None else ()
+    return lines if len(lines) > 1 or any(line.node != node.name for line in lines) else ()
+
+
+def resistors_at(terms: Iterable[ResistanceTerm], review: Review) -> tuple[str, ...]:
+    """Give the resistors of the netlist that make a resistance, as named in its working and listed among the lines."""
+    known = {line.text.split()[0].casefold() for line in review.lines if line.text[:1] in ("r", "R")}
+    known |= {one.name.rsplit(".", 1)[-1].casefold() for one in review.helps if one.unit == "Ω"}
+    words = [word for term in terms for word in _NAME.findall(term.name)]
+    return tuple(word for word in dict.fromkeys(words) if word.rsplit(".", 1)[-1].casefold() in known)
+
+
+def _remarks(nodes: Iterable[NodeRow], review: Review, *, solved: bool) -> list[str]:
+    """Say what must be known to add the table up."""
+    told = []
+    if any(len(places(node)) > 1 for node in nodes):
+        told.append(
+            "R of a node is that of the first place named below it, where most of its R·C stands; the places face "
+            "different resistances, and C of the node is its R·C over that R. C adds up in each place, R·C all through."
+        )
+    if solved:
+        told.append(f"{SOLVED} solved exactly: no hand rule fits this node.")
+    least = _SEEN * abs(whole_s(review))
+    for part in review.parts:
+        seconds = part.time_constant_s or 0.0
+        if part.kind == "transcapacitance" and part.in_path and abs(seconds) >= least:
+            title = part_title(part.name, part.owner)
+            told.append(f"R·C exact holds {title} too, {number(seconds, 's', 3)}, which paper leaves out.")
+    return told
 
 
 def smaller_nodes(review: Review) -> Grid:
@@ -173,7 +211,30 @@ def _node_rows(nodes: Iterable[NodeRow], review: Review) -> list[GridRow]:
                 part=node.name,
             )
         )
-        rows.extend(_term_rows(node, titles, whole))
+        rows.extend(_place_rows(node, review, titles, whole))
+    return rows
+
+
+def _place_rows(node: NodeRow, review: Review, titles: Mapping[str, str], whole: float) -> list[GridRow]:
+    """Give the capacitances of a node, each below the place where it hangs if the node is several."""
+    if not places(node):
+        return _term_rows(node, titles, whole)
+    rows = []
+    for line in places(node):
+        made = ", ".join(resistors_at(line.resistances, review))
+        cells = (
+            f"at {line.node}" + (f"; R from {made}" if made else ""),
+            number(line.resistance_hand_ohm, "Ω"),
+            number(line.resistance_exact_ohm, "Ω"),
+            number(math.fsum(term.farad * term.factor for term in line.capacitances), "F"),
+            number(line.time_constant_s, "s"),
+            number(line.time_constant_exact_s, "s"),
+            _of(line.time_constant_s, whole) if node.in_path else "",
+            "",
+        )
+        rows.append(GridRow(cells, "place"))
+        ordered = sorted(line.capacitances, key=lambda term: -abs(term_seconds(term, node)))
+        rows.extend(_term_row(term, node, titles, whole) for term in ordered)
     return rows
 
 

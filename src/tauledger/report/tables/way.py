@@ -8,22 +8,29 @@ from msgspec import Struct
 
 from tauledger.record import PartRow, Review
 from tauledger.report.tables.grid import Column, Grid, GridRow, columns
-from tauledger.report.wording import EDGE, NO_NUMBER, move, number, part_titles
+from tauledger.report.wording import EDGE, NO_NUMBER, coefficients, move, number, part_titles
 
 SHOWN = 0.005
 PROVED = 2
 STEP_TITLES = {
-    "lowest": "one node alone",
-    "all-nodes": "all nodes together",
+    "lowest": "slowest node alone",
+    "all-nodes": "a pole for each node",
     "exact-constants": "exact time constants",
-    "two-coefficients": "two coefficients b1, b2",
+    "two-coefficients": "two coefficients b₁, b₂",
     "all-poles": "all poles",
     "zeros": "zeros too",
     "full": "whole network",
     "simulated": "simulated",
     "exact": "exact",
 }
-LOWER_TITLES = {"lowest": "one capacitor alone", "all-nodes": "all capacitors together"}
+LOWER_TITLES = {"lowest": "highest edge alone", "all-nodes": "a pole for each capacitor"}
+METHODS = {
+    "lowest node alone": "slowest node alone",
+    "all nodes together": "a pole of its own for each node",
+    "highest capacitor alone": "capacitor with the highest edge alone",
+    "all capacitors together": "a pole of its own for each capacitor",
+    "two coefficients": "two coefficients b₁, b₂",
+}
 
 
 class Told(Struct, frozen=True):
@@ -33,6 +40,11 @@ class Told(Struct, frozen=True):
     hz: float
     change: float | None
     why: str
+
+
+def method_title(method: str) -> str:
+    """Name a method so that it says what is done with what."""
+    return METHODS.get(method, method)
 
 
 def way(review: Review, edge: str) -> tuple[Told, ...]:
@@ -63,7 +75,14 @@ def way(review: Review, edge: str) -> tuple[Told, ...]:
 def way_table(review: Review, edge: str) -> Grid:
     """List the steps with their reasons."""
     rows = [
-        GridRow((told.title, number(told.hz, "Hz"), "" if told.change is None else move(told.change), told.why))
+        GridRow(
+            (
+                told.title,
+                number(told.hz, "Hz"),
+                "" if told.change is None else move(told.change),
+                coefficients(told.why),
+            )
+        )
         for told in way(review, edge)
     ]
     heads = (Column("Estimate", "l"), Column(EDGE[edge]), Column("move"), Column("why", "l"))
@@ -75,7 +94,7 @@ def methods_table(review: Review, edge: str) -> Grid:
     rows = [
         GridRow(
             (
-                estimate.method + (" (recommended)" if estimate.recommended else ""),
+                method_title(estimate.method) + (" (recommended)" if estimate.recommended else ""),
                 number(estimate.hz, "Hz"),
                 NO_NUMBER if estimate.difference is None else move(estimate.difference),
             )
@@ -117,11 +136,15 @@ def reruns(review: Review) -> Grid:
     heads = (
         Column("Change", "l"),
         Column("edge", "l"),
-        Column("predicted by its share"),
+        Column("predicted, 0.9 to the power of −share"),
         Column("recomputed"),
         Column("edge then"),
     )
-    return Grid("The largest shares, put to the test by computing the whole network again", heads, tuple(rows))
+    note = (
+        "A share s means that the edge goes as C to the power of −s, so that 10 % less gives 0.9 to the power of −s; "
+        "for small shares that is +0.1·s. What is recomputed differs by what the share itself changes on the way."
+    )
+    return Grid("The largest shares, put to the test by computing the whole network again", heads, tuple(rows), note)
 
 
 def _largest(review: Review, edge: str) -> list[PartRow]:

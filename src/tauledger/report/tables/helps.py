@@ -1,0 +1,42 @@
+"""What would help: what 10 % less of one element does to both edges and the gain, resistors and gm among them."""
+
+from __future__ import annotations
+
+from tauledger.record import Help, Review
+from tauledger.report.tables.grid import Grid, GridRow, columns
+from tauledger.report.wording import move, nominal, number, part_title
+
+MARKS = {"bias": " §", "device": " ¶", "free": ""}
+
+
+def kind(one: Help) -> str:
+    """Say how free one is to change an element: "free", "bias" where that moves the operating point, "device"."""
+    if one.free:
+        return "free"
+    return "bias" if one.moves_bias else "device"
+
+
+def what_would_help(review: Review) -> Grid:
+    """Give first-order effects of 10 % less per element, and below it the exact ones where recomputed."""
+    rows = []
+    for one in review.helps:
+        title = part_title(one.name, one.owner) + MARKS[kind(one)]
+        value = nominal(one.value, one.unit) if one.name == one.owner else number(one.value, one.unit, 3)
+        first = (title, value, move(one.f_high), move(one.f_low), move(one.gain))
+        rows.append(GridRow(first, part=one.name))
+        if one.gain_rerun is not None:
+            high = change(one.f_high_rerun_hz, review.f_high.exact_hz if review.f_high else None)
+            low = change(one.f_low_rerun_hz, review.f_low.exact_hz if review.f_low else None)
+            rows.append(GridRow(("recomputed", "", move(high), move(low), move(one.gain_rerun)), "part"))
+    notes = ["To first order; the operating point is held."]
+    if any(kind(one) == "bias" for one in review.helps):
+        notes.append("§ takes part in the operating point: changed on the board it moves that too.")
+    if any(kind(one) == "device" for one in review.helps):
+        notes.append("¶ inside a device: another device or another bias, no change of a value.")
+    heads = columns("10 % less of", "value", "f_H", "f_L", "gain")
+    return Grid("What 10 % less of one element does", heads, tuple(rows), " ".join(notes))
+
+
+def change(hz: float | None, before: float | None) -> float | None:
+    """Give a frequency computed again as a fraction of what it was, less one."""
+    return hz / before - 1.0 if hz is not None and before else None
