@@ -214,7 +214,8 @@ class Change(Struct, frozen=True):
     temperature_c: analysis temperature in °C, or None. parameters: global `.param` values. elements: values of
     R, C, L
     (or the dc value of V, I; the gain of G) by flat name. models: (model, parameter, value). loads: added parts.
-    Names are compared folded.
+    given: (instance or element, parameter, value), of a subcircuit's parameters and of what a device's own card gives
+    (area, m). Names are compared folded.
     """
 
     temperature_c: float | None = None
@@ -222,6 +223,7 @@ class Change(Struct, frozen=True):
     elements: tuple[tuple[str, float], ...] = ()
     models: tuple[tuple[str, str, float], ...] = ()
     loads: tuple[Load, ...] = ()
+    given: tuple[tuple[str, str, float], ...] = ()
 
 
 NO_CHANGE = Change()
@@ -230,6 +232,7 @@ NO_CHANGE = Change()
 def joined(first: Change, second: Change) -> Change:
     """Give both changes in one; where they set the same thing the second counts."""
     models = {(fold(m), fold(p)): (m, p, value) for m, p, value in (*first.models, *second.models)}
+    given = {(fold(of), fold(p)): (of, p, value) for of, p, value in (*first.given, *second.given)}
     return Change(
         temperature_c=first.temperature_c if second.temperature_c is None else second.temperature_c,
         parameters=tuple(
@@ -238,6 +241,7 @@ def joined(first: Change, second: Change) -> Change:
         elements=tuple({fold(name): (name, value) for name, value in (*first.elements, *second.elements)}.values()),
         models=tuple(models.values()),
         loads=first.loads + second.loads,
+        given=tuple(given.values()),
     )
 
 

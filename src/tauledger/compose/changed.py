@@ -9,7 +9,7 @@ from tauledger.record import EdgeFacts, MovedFigure, Review, SetValue
 def set_values(change: Change) -> tuple[SetValue, ...]:
     """List what a change sets: parameters, elements, parameters of models."""
     named = [*change.parameters, *change.elements]
-    named += [(f"{model}.{parameter}", value) for model, parameter, value in change.models]
+    named += [(f"{model}.{parameter}", value) for model, parameter, value in (*change.models, *change.given)]
     return tuple(SetValue(name, value) for name, value in named)
 
 

@@ -21,6 +21,7 @@ def add_run(netlist: Netlist, draft: Draft, around: Surroundings, number: int, r
     names = [prefix + name for name in found.folded_names] if prefix else found.folded_names
     fresh = dict(zip(names, range(number, number + run.count), strict=True))
     changed = not draft.changed_elements.keys().isdisjoint(fresh)
+    changed = changed or any(of in fresh for of, _ in draft.changed_given)
     if len(fresh) < run.count or changed or not draft.taken.keys().isdisjoint(fresh):
         return False
     if any(map(DOUBLED.fullmatch, {text for text in run.text.split()[3::4] if text[-2:].isalpha()})):

@@ -73,6 +73,7 @@ class Draft(Struct):
     taken: dict[str, int] = field(default_factory=dict)
     changed_elements: dict[str, tuple[str, float]] = field(default_factory=dict)
     changed_models: dict[tuple[str, str], tuple[str, str, float]] = field(default_factory=dict)
+    changed_given: dict[tuple[str, str], tuple[str, str, float]] = field(default_factory=dict)
     fixed: set[str] = field(default_factory=set)
     refusals: list[Diagnostic] = field(default_factory=list)
     nodesets: dict[int, float] = field(default_factory=dict)
@@ -91,9 +92,10 @@ def check_finite(name: str, value: float) -> None:
 def draft_for(change: Change) -> Draft:
     """Begin a circuit that a Change will alter; raises InputError for a value that is not finite."""
     draft = Draft()
-    for name, value in (*change.elements, *((parameter, value) for _, parameter, value in change.models)):
+    for name, value in (*change.elements, *((p, value) for _, p, value in (*change.models, *change.given))):
         check_finite(name, value)
     draft.changed_elements = {fold(name): (name, value) for name, value in change.elements}
+    draft.changed_given = {(fold(of), fold(p)): (of, p, value) for of, p, value in change.given}
     draft.changed_models = {(fold(m), fold(p)): (m, p, value) for m, p, value in change.models}
     return draft
 
@@ -118,6 +120,12 @@ def check_all_used(draft: Draft) -> None:
         raise InputError(
             f"no element is called {visible(name)!r}", nearest(name, known, otherwise=f"there are {_listed(known)}")
         )
+    for name, parameter, _value in draft.changed_given.values():
+        known = [*(instance.name for instance in draft.instances[1:]), *(element.name for element in draft.elements)]
+        if fold(name) not in draft.taken:
+            otherwise = f"there are {_listed(known)}"
+            raise InputError(f"nothing is called {visible(name)!r}", nearest(name, known, otherwise=otherwise))
+        raise InputError(f"{visible(name)} has no parameter {visible(parameter)!r} that could be set")
     for name, parameter, _value in draft.changed_models.values():
         known = [model.name for model in draft.models.values()]
         if fold(name) not in {fold(model) for model in known}:

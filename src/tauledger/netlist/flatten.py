@@ -16,7 +16,7 @@ from tauledger.netlist.conditions import counts
 from tauledger.netlist.controlled import behavioural, controlled, coupling, line
 from tauledger.netlist.diagnostics import MOST_DIAGNOSTICS, Site, visible
 from tauledger.netlist.draft import MOST_ELEMENTS, MOST_INSTANCES, Draft, Row
-from tauledger.netlist.elements import ElementCard, Fields, InstanceCard, device, fields, instance, multiplicity
+from tauledger.netlist.elements import FLAGS, ElementCard, Fields, InstanceCard, device, fields, instance, multiplicity
 from tauledger.netlist.instances import check_nesting, find_definition, open_scope, own_names
 from tauledger.netlist.items import Item, Setting, Word
 from tauledger.netlist.letters import (
@@ -128,7 +128,7 @@ def _element(
     else:
         seen = visible_models(netlist, around)
         part = _modelled(site, card, letter, seen.with_bins if letter == "M" else seen.names, around.scope)
-        part = _scaled(draft, part, letter)
+        part = _scaled(draft, _given(draft, name, part, letter), letter)
         if part.model is not None and fold(part.model.text) not in seen.models:
             part = replace(part, model=picked_bin(netlist, draft, seen, part, part.model, letter, site))
     plain = letter in PASSIVES and part.model is None and [key for key, _ in part.parameters] == ["value"]
@@ -188,6 +188,34 @@ def _modelled(site: Site, card: Fields, letter: str, models: frozenset[str], sco
     known = frozenset().union(*(family.instance_parameters for family in families_of(letter)))
     part = device(site, card, MODELLED[letter], models, known, scope)
     return part if control is None else replace(part, references=(control,))
+
+
+def _given(draft: Draft, name: str, part: ElementCard, letter: str) -> ElementCard:
+    """Put changed values of the card's own in their places: m, and the parameters that the letter's devices take."""
+    changes = [change for change in list(draft.changed_given.values()) if fold(change[0]) == fold(name)]
+    for _, parameter, value in changes:
+        word = fold(parameter)
+        if word not in settable(letter):
+            continue
+        del draft.changed_given[fold(name), word]
+        if (word == "m" or word.startswith("area")) and not value > 0.0:
+            raise InputError(f"{name}: {word} must be greater than 0, not {value:.6g}")
+        if word == "m":
+            part = replace(part, m=value)
+            continue
+        kept = tuple(pair for pair in part.parameters if pair[0] != word)
+        part = replace(part, parameters=(*kept, (word, value)))
+    return part
+
+
+def settable(letter: str) -> frozenset[str]:
+    """Give the folded names that a device's own card can give a value, m included; none for a letter without model."""
+    if letter in PASSIVES:
+        return frozenset({"m"})
+    if letter not in MODELLED:
+        return frozenset()
+    own = frozenset().union(*(family.instance_parameters for family in families_of(letter)))
+    return own - FLAGS if letter in WITHOUT_M else (own | {"m"}) - FLAGS
 
 
 def _scaled(draft: Draft, part: ElementCard, letter: str) -> ElementCard:
@@ -365,6 +393,8 @@ def _instance(
     context = (f"in {visible(name)} ({site.where}), subcircuit {visible(definition.name)} ({where})", *around.context)
     draft.contexts.append(context)
     scope = open_scope(netlist, around, definition, call, site, context)
+    for key in [key for key in draft.changed_given if key[0] == fold(name) and key[1] in scope.bindings]:
+        scope.fixed[key[1]] = draft.changed_given.pop(key)[2]
     draft.scopes.append(scope)
     inner = Surroundings(
         definition=definition,
@@ -374,7 +404,7 @@ def _instance(
             fold(port.text): node_of(netlist, draft, around, node)
             for port, node in zip(definition.ports, call.nodes, strict=True)
         },
-        m=_instance_m(around, definition, call, site, netlist),
+        m=_instance_m(draft, around, definition, call, site, netlist, name),
         path=path,
         context=context,
         caller=around,
@@ -390,11 +420,25 @@ def _instance(
 
 
 def _instance_m(
-    around: Surroundings, definition: Definition, call: InstanceCard, site: Site, netlist: Netlist
+    draft: Draft,
+    around: Surroundings,
+    definition: Definition,
+    call: InstanceCard,
+    site: Site,
+    netlist: Netlist,
+    name: str,
 ) -> float:
     """Give the product of m for the body: m on X multiplies unless the subcircuit has a parameter of that name."""
-    given = next((setting for setting in call.settings if fold(setting.name.text) == "m"), None)
-    if given is None or "m" in own_names(netlist, definition):
+    if "m" in own_names(netlist, definition):
         return around.m
-    own = multiplicity(site, given, around.scope)
+    changed = draft.changed_given.pop((fold(name), "m"), None)
+    given = next((setting for setting in call.settings if fold(setting.name.text) == "m"), None)
+    if changed is not None and not changed[2] > 0.0:
+        raise InputError(f"{name}: m must be greater than 0, not {changed[2]:.6g}")
+    if changed is not None:
+        own = changed[2]
+    elif given is not None:
+        own = multiplicity(site, given, around.scope)
+    else:
+        return around.m
     return _product(around, own, around.prefix + site.card.text.split(maxsplit=1)[0], site)
