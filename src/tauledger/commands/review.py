@@ -37,7 +37,11 @@ _EXIT_CODES = (
 @click.option("--paper", metavar="PAGE", help="Set your own figures in PAGE (TOML) beside hand and exact.")
 @click.option("--working", metavar="NODE", multiple=True, help="Work a signal node out, line by line; repeatable.")
 @click.option(
-    "--set", "settings", metavar="NAME=VALUE", multiple=True, help="Set a .param, element or model.parameter."
+    "--set",
+    "settings",
+    metavar="NAME=VALUE",
+    multiple=True,
+    help="Set a .param, an element, model.parameter, X1.parameter or Q1.area.",
 )
 @click.option("--allow-include", "allow", metavar="DIR", multiple=True, help="Include files from DIR too; repeatable.")
 @click.option("--fold", metavar="INSTANCE", multiple=True, help="Show a subcircuit instance as one part; none: no one.")
