@@ -147,7 +147,10 @@ def _budget(review: Review) -> Section:
     if nodes:
         blocks.append(upper.budget(review))
         blocks.extend(
-            Folded(f"Working: {node_title(node)}, share of f_H {fraction(node.share.f_high)}", working(node, review))
+            Folded(
+                f"Working, in Ω and S: {node_title(node)}, share of f_H {fraction(node.share.f_high)}",
+                working(node, review),
+            )
             for node in nodes
             if node.working is not None
         )
