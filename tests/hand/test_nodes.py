@@ -2,16 +2,20 @@
 
 from __future__ import annotations
 
+from pathlib import Path
+
 import pytest
 
 from cells import bipolar, board
 from tauledger.circuit import Port
 from tauledger.devices.family import Device
 from tauledger.devices.parts import Part, capacitance, resistance, transconductance, voltage_source
+from tauledger.engine.client import Engine
 from tauledger.hand.budget import signal_nodes
 from tauledger.hand.equivalent import upper_circuit
 from tauledger.hand.roles import role_of
 from tauledger.network.bands import Bands
+from tauledger.pipeline import review
 
 RC, RL = resistance("RC", "c", "0", 3e3), resistance("RL", "out", "0", 10e3)
 COUPLING = capacitance("C3", "c", "out", 10e-6)
@@ -159,3 +163,22 @@ def test_a_mirror_has_its_diode_and_its_output() -> None:
         RL,
     )
     assert roles(mirror) == {"Q1": "diode-connected", "Q2": "current mirror output"}
+
+
+def test_a_card_with_two_controls_is_two_sources_of_one_owner(engine: Engine, tmp_path: Path) -> None:
+    """`G1 0 g POLY(2) …`: each control makes a transconductance, and either may be a cell."""
+    path = tmp_path / "two.cir"
+    path.write_text(
+        "two controls\nV1 a 0 ac 1\nRa a x 1k\nRb x y 2k\nRy y 0 3k\nG1 0 g POLY(2) x 0 y 0 0 1m 2m\n"
+        "Rg g out 1k\nCL out 0 1n\nRL out 0 1k\n.end\n"
+    )
+    assert {row.name for row in review(path, engine=engine).nodes} >= {"x", "y", "g", "out"}
+
+
+def test_a_substrate_that_floats_has_no_signal_and_no_row(engine: Engine, tmp_path: Path) -> None:
+    path = tmp_path / "floating.cir"
+    path.write_text(
+        "floating substrate\nV1 vp 0 5\nVin in 0 ac 1\nRin in i 1k\nCi i b 1u\nRb vp b 300k\nQ1 c b 0 fl qg\n"
+        "Rc vp c 1k\n.model qg npn is=1e-15 bf=100 cje=1p cjc=1p tf=1n cjs=2p\n.print ac v(c)\n.end\n"
+    )
+    assert "c" in {row.name for row in review(path, engine=engine).nodes}

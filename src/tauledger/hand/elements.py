@@ -234,19 +234,24 @@ def read_terminals(
         if t.word not in WITHOUT_SIGNAL
     ]
     named = {terminal.owner for terminal in found}
-    card: dict[str, tuple[str, ...]] = {}
-    for part in whole.parts:
-        if part.kind == "transconductance":
-            card.setdefault(part.owner, part.nodes)
     for cell in cells:
         if cell.owner in named:
             continue
-        out, control = card[cell.owner][:2], card[cell.owner][2:]
         ends = (cell.control, cell.common, cell.output)
+        out, control = _source_of(cell, ends, at, whole)
         for word, node, nodes in zip(cell.words, ends, (control, out, out), strict=True):
             name = next(name for name in nodes if at[name] == node)
             found.append(TerminalAt(cell.owner, word, node, node, name))
     return tuple(found)
+
+
+def _source_of(
+    cell: Cell, ends: tuple[str, ...], at: Mapping[str, str], whole: Network
+) -> tuple[tuple[str, ...], tuple[str, ...]]:
+    """Give output and control nodes of the source behind a lone cell: a card with several controls makes several."""
+    sources = [part.nodes for part in whole.parts if part.kind == "transconductance" and part.owner == cell.owner]
+    nodes = next(nodes for nodes in sources if set(ends) <= {at[node] for node in nodes})
+    return nodes[:2], nodes[2:]
 
 
 def _parallel_ohm(parts: Iterable[Part]) -> float:

@@ -163,7 +163,8 @@ def equivalent_circuit(
     """
     order = [GROUND, *network.unknowns[: network.n_nodes]]
     hand = joined_nodes(network, {p.name for p in network.parts if p.kind in ("voltage source", "inductance")})
-    at = {node: hand[upper] for node, upper in merged.items()}
+    # a node that hung on capacitances alone is in no part of this network: no signal is there
+    at = {node: hand.get(upper, GROUND) for node, upper in merged.items()}
     nodes = tuple(dict.fromkeys(hand[node] for node in order if hand[node] != GROUND))
     solved = _solve(network, hand, nodes, s)
     moved = {node for node, v in zip(order[1:], solved.forced, strict=False) if v}
