@@ -26,6 +26,15 @@ QUIET = [
 TOO_WIDE = """() => [...document.querySelectorAll("table")]
   .filter((table) => table.offsetParent && (table.getBoundingClientRect().right > innerWidth + 0.5
     || table.scrollWidth > table.clientWidth + 1)).map((table) => table.caption.textContent)"""
+CUT_OFF = """() => [...document.querySelectorAll("svg.chart")].filter((svg) => svg.checkVisibility()).flatMap((svg) => {
+  const frame = svg.getBoundingClientRect();
+  const words = [...svg.querySelectorAll("text")].filter((text) => {
+    const box = text.getBoundingClientRect();
+    return box.right > frame.right + 1 || box.left < frame.left - 1;
+  });
+  const wide = svg.parentElement.scrollWidth > svg.parentElement.clientWidth + 1 ? ["to be scrolled"] : [];
+  return [...wide, ...words.map((text) => text.textContent)];
+})"""
 # Relative luminance and contrast ratio as WCAG 2.2 has them, of every text against what lies behind it.
 FAINT = """() => {
   const channels = (color) => (color.match(/[\\d.]+/g) || []).map(Number);
@@ -83,6 +92,8 @@ def test_the_page_in_a_browser(browser: Browser, tmp_path: Path) -> None:
     for width in (360, 768, 1440):
         page.set_viewport_size({"width": width, "height": 900})
         assert page.evaluate(TOO_WIDE) == []
+        assert page.evaluate(CUT_OFF) == []
+        assert page.locator("svg.chart:visible").count() == 4
         assert page.evaluate("document.documentElement.scrollWidth") <= width
     for picture in page.locator("svg:visible").all():
         box = picture.bounding_box()

@@ -80,7 +80,7 @@ def roots_table(review: Review) -> Grid:
         Column("", "l"),
         Column("at"),
         Column("kind", "l"),
-        Column("by hand", "l"),
+        Column("by formula", "l"),
         Column("effect", "l"),
         Column("what sets it", "l"),
     )

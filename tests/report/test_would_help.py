@@ -1,0 +1,53 @@
+"""What would help: resistors and transconductance beside capacitances, with what each costs in gain."""
+
+from __future__ import annotations
+
+from msgspec.structs import replace
+
+from report.literal import ECHO_PREAMP
+from tauledger.record import Help, PoleFacts, Review
+from tauledger.report.document import Picture, document
+from tauledger.report.sentences import answers
+from tauledger.report.tables.helps import what_would_help
+
+LOAD = Help("CL", "CL", ("out", "0"), 50e-12, "F", True, False, 0.029, 0.0, 0.0, 598.2e3, 121.9, 0.0)
+COLLECTOR = Help("RC", "RC", ("vcc", "out"), 3.3e3, "Ω", False, True, 0.071, 0.001, -0.081)
+INSIDE = Help("Q1.c_mu", "Q1", ("b", "out"), 2.16e-12, "F", False, False, 0.064, 0.0, 0.0)
+HELPED = replace(ECHO_PREAMP, helps=(LOAD, COLLECTOR, INSIDE))
+
+
+def told(review: Review) -> str:
+    (answer,) = (answer.answer for answer in answers(review) if answer.question == "What would help most?")
+    return answer
+
+
+def test_the_answer_names_one_of_each_kind_with_its_cost() -> None:
+    answer = told(HELPED)
+    assert "CL +3.0 % (to 598.2 kHz, recomputed; gain unchanged; leaves the bias alone)" in answer
+    assert "RC +7.1 % (to first order; gain -8.1 %; moves the bias too)" in answer
+    assert "C_μ of Q1 +6.4 % (to first order; gain unchanged; in a device)" in answer
+
+
+def test_what_hardly_helps_is_not_named() -> None:
+    weak = replace(ECHO_PREAMP, helps=(replace(LOAD, f_high=0.001), COLLECTOR, INSIDE))
+    assert "CL" not in told(weak)
+
+
+def test_the_table_marks_what_is_no_free_choice_and_sets_the_proof_below() -> None:
+    grid = what_would_help(HELPED)
+    assert [row.cells[0] for row in grid.rows] == ["CL", "recomputed", "RC §", "C_μ of Q1 ¶"]
+    assert grid.rows[1].kind == "part"
+    assert grid.rows[1].cells[2] == "+3.0 %"
+    assert "§ takes part in the operating point" in grid.note
+    assert "helps" in {section.key for section in document(HELPED).sections}
+    assert "helps" not in {section.key for section in document(ECHO_PREAMP).sections}
+
+
+def pictures(review: Review) -> set[str]:
+    return {block.name for part in document(review).sections for block in part.blocks if isinstance(block, Picture)}
+
+
+def test_the_plane_is_drawn_where_it_shows_more_than_a_line() -> None:
+    pair = PoleFacts(-2e5, 5e5, None, "", None, (), f0_hz=5.4e5, q=1.3)
+    assert "plane" not in pictures(ECHO_PREAMP)
+    assert "plane" in pictures(replace(ECHO_PREAMP, poles=(*ECHO_PREAMP.poles, pair)))
