@@ -19,6 +19,7 @@ from tauledger.devices.parts import Part, resistance, voltage_source
 from tauledger.hand.combine import combine_lower, combine_upper
 from tauledger.hand.estimate import InnerLine, LookingIn, LowerRow, MillerTerm, SignalNode
 from tauledger.hand.lower import nearest_zero_owner
+from tauledger.hand.methods import methods
 from tauledger.hand.steps import lower_steps, upper_steps
 from tauledger.network.assemble import Network, incidence
 from tauledger.network.bands import Bands, classify, find_midband
@@ -98,6 +99,11 @@ def evidence(
         edge
         if edge.found is None or edge.found.hz is None
         else replace(edge, shares=find_shares(network, bands.midband, edge.found.hz, bands.class_of).parts)
+        for edge in (upper, lower)
+    )
+    found = methods(upper.combined, lower.combined, upper_hz=upper.hz, lower_hz=lower.hz)
+    upper, lower = (
+        replace(edge, recommended=next((m for m in found if m.edge == edge.edge and m.recommended), None))
         for edge in (upper, lower)
     )
     return Evidence(bands, poles, zeros, devices, nodes, capacitors, upper, lower, stepped)

@@ -212,4 +212,5 @@ def _evidence(
         steps=tuple(step for step in hand.steps if step.edge == name) if hand else (),
         found=edge,
         shares=shares.parts if shares is not None else {},
+        recommended=next((m for m in hand.methods if m.edge == name and m.recommended), None) if hand else None,
     )

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import pytest
+from msgspec.structs import replace
 
 import boards
 from by_algebra import evidence
@@ -16,9 +17,10 @@ def test_cascode_has_poles_five_to_one_and_a_sum_14_per_cent_low() -> None:
     assert (cause.cause, cause.quantity) == ("no-dominant-pole", "f_H")
     assert cause.effect == pytest.approx(-0.142, abs=1e-3)
     assert cause.says == (
-        "no pole dominates: 38.6 MHz and 200 MHz are 5.2 to 1, so the open-circuit sum, 32.0 MHz, comes out 14 % low"
+        "no pole dominates: 38.6 MHz and 200 MHz are 5.2 to 1, so the open-circuit sum, 32.0 MHz, comes out 14 % low "
+        "against all poles together, 37.3 MHz"
     )
-    assert "37.2 MHz" in cause.instead
+    assert cause.instead == "take every node, each with a pole of its own: 38.1 MHz"
 
 
 def test_three_low_edges_make_the_short_circuit_sum_high() -> None:
@@ -28,6 +30,18 @@ def test_three_low_edges_make_the_short_circuit_sum_high() -> None:
     assert cause.quantity == "f_L"
     assert cause.effect == pytest.approx(2029.2 / 1778.6 - 1, abs=1e-4)
     assert "short-circuit sum, 2.03 kHz, comes out 14 % high" in cause.says
+
+
+def test_its_effect_leaves_the_zeros_to_their_own_cause() -> None:
+    """Sum ÷ all poles, whatever the exact edge is: were it 10 % lower by a zero, that is not this cause."""
+    found = evidence(boards.three_low_edges())
+    assert found.lower.combined is not None
+    assert found.lower.combined.all_poles is not None
+    moved = replace(found, lower=replace(found.lower, hz=0.9 * found.lower.combined.all_poles))
+    told, as_it_is = no_dominant_pole_below(moved), no_dominant_pole_below(found)
+    assert told is not None
+    assert as_it_is is not None
+    assert told.effect == as_it_is.effect
 
 
 def test_poles_twenty_to_one_have_a_dominant_one() -> None:

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable
 
 from tauledger.causes import notes
+from tauledger.causes.capacitors_left_out import other_capacitors_left_out
 from tauledger.causes.cause import Cause, Note
 from tauledger.causes.complex_poles import complex_poles_above, complex_poles_below
 from tauledger.causes.edges_interact import lower_edge_near_upper, upper_edge_near_lower
@@ -22,6 +23,7 @@ from tauledger.causes.zero_near_edge import zero_near_lower_edge, zero_near_uppe
 CAUSES: tuple[Callable[[Evidence], Cause | None], ...] = (
     output_left_out,
     other_node_left_out,
+    other_capacitors_left_out,
     gain_falls_first,
     interaction_above,
     interaction_below,
@@ -66,13 +68,23 @@ NOTES: tuple[Callable[[Evidence], Note | None], ...] = (
 )
 
 WORTH_TELLING = 0.02
+# Not on the way from the dominant time constant alone, which is the figure by hand, to the exact edge.
+OF_ANOTHER_METHOD = frozenset({"no-dominant-pole"})
 
 
 def find_causes(evidence: Evidence) -> tuple[Cause, ...]:
-    """Give the causes that move an edge by 2 % or more, the largest effect first, what paper may leave out last."""
+    """Give the causes that move an edge by 2 % or more, the largest effect first.
+
+    Those on the way from the dominant time constant alone to the exact edge come before those that say why another
+    method misses; what paper may leave out is last.
+    """
     found = [cause for cause in (look(evidence) for look in CAUSES) if cause is not None]
     worth = [cause for cause in found if abs(cause.effect) >= WORTH_TELLING]
-    return tuple(sorted(worth, key=lambda cause: (cause.on_paper, -abs(cause.effect))))
+    return tuple(sorted(worth, key=_rank))
+
+
+def _rank(cause: Cause) -> tuple[bool, bool, float]:
+    return cause.on_paper, cause.cause in OF_ANOTHER_METHOD, -abs(cause.effect)
 
 
 def find_notes(evidence: Evidence) -> tuple[Note, ...]:

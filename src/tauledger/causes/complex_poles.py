@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from tauledger.causes.advice import advice, nearer
 from tauledger.causes.cause import Cause
 from tauledger.causes.evidence import EdgeEvidence, Evidence, in_hertz, interaction_step, move, outward
 from tauledger.hand.poles import pair_frequency_and_q
@@ -31,14 +32,17 @@ def _complex_poles(edge: EdgeEvidence) -> Cause | None:
     f0, q = pair_frequency_and_q(poles[0])
     if max(f0 / edge.hz, edge.hz / f0) > NEAR:
         return None
+    before = combined.exact_constants
     instead = "take the poles themselves: more than two of them count"
-    if combined.all_poles is not None:
+    if combined.all_poles is not None and nearer(edge, combined.all_poles, before):
         instead += f", and all give {in_hertz(combined.all_poles)}"
-    if combined.two_coefficients is not None and not combined.two_coefficients_overshoot:
+    elif before is not None:
+        instead = advice(edge, before)
+    both = None if combined.two_coefficients_overshoot else combined.two_coefficients
+    if both is not None and nearer(edge, both, before):
         coefficients = ("1/(2π·√b2)", "√b2/b1") if edge.edge == "f_high" else ("√a2/2π", "√a2/a1")
         instead = (
-            f"take f0 = {coefficients[0]} and Q = {coefficients[1]} instead of one pole per node: "
-            f"{in_hertz(combined.two_coefficients)}"
+            f"take f0 = {coefficients[0]} and Q = {coefficients[1]} instead of one pole per node: {in_hertz(both)}"
         )
     separate = ""
     if combined.exact_constants is not None:

@@ -12,7 +12,7 @@ from tauledger.devices.family import Device
 from tauledger.devices.parts import Part
 from tauledger.hand.combine import Combined
 from tauledger.hand.estimate import Edge as EdgeName
-from tauledger.hand.estimate import LowerRow, SignalNode, StepEstimate
+from tauledger.hand.estimate import LowerRow, MethodEstimate, SignalNode, StepEstimate
 from tauledger.hand.halves import counted
 from tauledger.network.bands import Bands
 from tauledger.network.edges import Edge
@@ -28,7 +28,7 @@ class EdgeEvidence(Struct, frozen=True):
 
     hz: exact, None where there is none. slope: d ln|H| / d ln f there. combined, steps: None and empty where the hand
     side is withheld. found: the same edge with what lies around it, None where nothing happens on that side.
-    shares: −∂ln f/∂ln C by part name.
+    shares: −∂ln f/∂ln C by part name. recommended: the method that suits the edge, None where no method does.
     """
 
     edge: EdgeName
@@ -38,6 +38,7 @@ class EdgeEvidence(Struct, frozen=True):
     steps: tuple[StepEstimate, ...]
     found: Edge | None = None
     shares: Mapping[str, float] = {}
+    recommended: MethodEstimate | None = None
 
     @property
     def quantity(self) -> Quantity:

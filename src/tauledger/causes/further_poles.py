@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from tauledger.causes.advice import nearer
 from tauledger.causes.cause import Cause
 from tauledger.causes.complex_poles import complex_poles_above, complex_poles_below
 from tauledger.causes.evidence import EdgeEvidence, Evidence, hertz, in_hertz, interaction_step, move, outward
@@ -49,9 +50,15 @@ def _further_poles(edge: EdgeEvidence, *, said: bool) -> Cause | None:
         where=f"poles at {', '.join(where)}",
         says=f"more than two poles count: {', '.join(where[:-1])} and {where[-1]}; {paper} give {in_hertz(before)}, "
         f"all poles {in_hertz(combined.all_poles)}",
-        instead="take the poles of the whole network: no formula of two coefficients holds a third one",
+        instead=_instead(edge, combined.all_poles, before),
         numbers=(NamedNumber("before", before, "Hz"), NamedNumber("all poles", combined.all_poles, "Hz")),
     )
+
+
+def _instead(edge: EdgeEvidence, all_hz: float, before: float) -> str:
+    if nearer(edge, all_hz, before):
+        return "take the poles of the whole network: no formula of two coefficients holds a third one"
+    return "take poles and zeros of the whole network: with the poles alone it leads further off"
 
 
 def _placed(pole: complex) -> str:

@@ -5,8 +5,10 @@ from __future__ import annotations
 import numpy as np
 from msgspec import Struct
 
+from tauledger.causes.advice import advice, nearer
 from tauledger.causes.cause import Cause
 from tauledger.causes.evidence import (
+    EdgeEvidence,
     Evidence,
     hertz,
     in_hertz,
@@ -65,7 +67,7 @@ def gain_falls_first(evidence: Evidence) -> Cause | None:
         says=f"{part} counts {_times(worst.term.factor)} times at {worst.row.title}, a pole at "
         f"{in_hertz(worst.hand_hz)} by hand; there the gain has fallen and it counts only "
         f"{_times(worst.factor, 2)} times: the second pole is at {in_hertz(hertz(poles[1]))}",
-        instead=f"take both poles from b1 and b2 (1/b1 and b1/b2), not one pole per node{_moved(combined)}",
+        instead=_instead(evidence.upper, combined),
         numbers=(
             NamedNumber("Miller factor at mid-band", worst.term.factor, ""),
             NamedNumber("Miller factor at the pole by hand", worst.factor, ""),
@@ -79,11 +81,16 @@ def _times(factor: float, digits: int = 3) -> str:
     return f"{factor:.{digits}g}" if factor < 10**digits else f"{factor:,.0f}"
 
 
-def _moved(combined: Combined) -> str:
+def _instead(edge: EdgeEvidence, combined: Combined) -> str:
+    """Advise both poles from b1 and b2, where they are real and lead nearer to f_H than the lowest node alone."""
     hz = combined.all_poles if combined.two_coefficients_overshoot else combined.two_coefficients
-    if hz is None or combined.lowest is None:
-        return ""
-    return f": {in_hertz(hz)} instead of {in_hertz(combined.lowest)}"
+    if hz is None or combined.lowest is None or not nearer(edge, hz, combined.lowest):
+        return "take no node by a pole of its own" if combined.lowest is None else advice(edge, combined.lowest)
+    first, second = outward(edge)[:2]
+    both = "both poles from b1 and b2 (1/b1 and b1/b2)"
+    if first.imag or second.imag:
+        both = "the poles together" if combined.two_coefficients_overshoot else "b1 and b2 together"
+    return f"take {both}, not one pole per node: {in_hertz(hz)} instead of {in_hertz(combined.lowest)}"
 
 
 def _fallen(evidence: Evidence, row: SignalNode) -> list[_Fallen]:

@@ -2,10 +2,12 @@
 
 from __future__ import annotations
 
+from tauledger.causes.advice import advice, nearer
 from tauledger.causes.cause import Cause
 from tauledger.causes.complex_poles import complex_poles_above, complex_poles_below
 from tauledger.causes.evidence import EdgeEvidence, Evidence, hertz, in_hertz, move, outward
 from tauledger.causes.gain_falls_first import gain_falls_first
+from tauledger.hand.combine import Combined
 from tauledger.hand.poles import SEPARATED
 from tauledger.record import NamedNumber
 
@@ -39,11 +41,7 @@ def _interaction(edge: EdgeEvidence) -> Cause | None:
     splits = combined.sigma < SPLITTING
     how = "load each other and push their poles apart" if splits else "act on each other"
     thing = "capacitances" if edge.edge == "f_high" else "coupling and bypass capacitors"
-    coefficients = ("1/b1", "b1/b2") if edge.edge == "f_high" else ("a1", "a2/a1")
-    instead = f"give no capacitor a pole of its own: {coefficients[0]} is the first, {coefficients[1]} the second"
-    if combined.coefficients.separation <= SEPARATED and combined.two_coefficients is not None:
-        both = "b1 and b2" if edge.edge == "f_high" else "a1 and a2"
-        instead = f"give no capacitor a pole of its own: {both} together give {in_hertz(combined.two_coefficients)}"
+    instead = f"give no capacitor a pole of its own: {_instead(edge, combined)}"
     becomes = ""
     if combined.exact_constants is not None and combined.two_coefficients is not None:
         becomes = f", {in_hertz(combined.exact_constants)} becomes {in_hertz(combined.two_coefficients)}"
@@ -60,3 +58,15 @@ def _interaction(edge: EdgeEvidence) -> Cause | None:
             NamedNumber("second pole", hertz(poles[1]), "Hz"),
         ),
     )
+
+
+def _instead(edge: EdgeEvidence, combined: Combined) -> str:
+    before, both = combined.exact_constants, combined.two_coefficients
+    if before is None or both is None or not nearer(edge, both, before):
+        return advice(edge, before) if before is not None else "take the poles of the whole network"
+    poles = outward(edge)
+    real = not poles[0].imag and not poles[1].imag
+    if real and combined.coefficients.separation > SEPARATED and nearer(edge, combined.sum_of_constants, before):
+        return "1/b1 is the first, b1/b2 the second" if edge.edge == "f_high" else "a1 is the first, a2/a1 the second"
+    named = "b1 and b2" if edge.edge == "f_high" else "a1 and a2"
+    return f"{named} together give {in_hertz(both)}"

@@ -4,9 +4,9 @@ from __future__ import annotations
 
 import math
 
+from tauledger.causes.advice import advice
 from tauledger.causes.cause import Cause
 from tauledger.causes.evidence import Evidence, in_hertz, in_seconds, move, rows_that_count
-from tauledger.hand.combine import Combined
 from tauledger.hand.estimate import SignalNode
 from tauledger.record import NamedNumber
 
@@ -44,7 +44,7 @@ def _left_out(evidence: Evidence, rows: list[SignalNode], cause: str, who: str) 
         where=rows[1].title,
         says=f"{rows[0].title} alone gives {in_hertz(combined.lowest)} and leaves out {who}, "
         f"which takes {in_seconds(left)} of {in_seconds(total)}{each}",
-        instead=_instead(evidence.upper.hz, combined),
+        instead=advice(evidence.upper, combined.lowest),
         numbers=(
             NamedNumber("time constant left out", left, "s"),
             NamedNumber("sum of time constants", total, "s"),
@@ -52,22 +52,6 @@ def _left_out(evidence: Evidence, rows: list[SignalNode], cause: str, who: str) 
             *((NamedNumber("all nodes together", combined.all_nodes, "Hz"),) if combined.all_nodes is not None else ()),
         ),
     )
-
-
-def _instead(exact_hz: float | None, combined: Combined) -> str:
-    """Advise what comes nearer to f_H than the lowest node alone: the sum where it is best, else each node's pole."""
-    lowest, separate, total = (
-        _miss(hz, exact_hz) for hz in (combined.lowest, combined.all_nodes, combined.sum_of_constants)
-    )
-    if combined.sum_of_constants is not None and total < min(lowest, separate):
-        return f"add the time constant of every node: their sum gives {in_hertz(combined.sum_of_constants)}"
-    if separate < lowest:
-        return "take every node, each with a pole of its own"
-    return "count it together with the other causes: taken alone it leads further off"
-
-
-def _miss(hz: float | None, exact_hz: float | None) -> float:
-    return math.inf if hz is None or exact_hz is None else abs(math.log(hz / exact_hz))
 
 
 def _is_output(row: SignalNode, evidence: Evidence) -> bool:
