@@ -46,12 +46,18 @@ Factor = Callable[[Split], float]
 
 
 class AtNode(Struct, frozen=True):
-    """One signal node worked again: ohm, F, s, and K of the capacitance that the gain multiplies most (None: none)."""
+    """One signal node worked again: ohm, F, s, and K of the capacitance that `bridging` gives (None: none).
+
+    capacitance: time_constant/resistance. plain: the sum of the parts with their factors, those behind r_b in full.
+    miller_factor: that of the capacitance with `miller_gain`, as the slip has it.
+    """
 
     resistance: float
     capacitance: float
+    plain: float
     time_constant: float
     miller_gain: float | None
+    miller_factor: float | None
 
 
 class Worked(Struct, frozen=True):
@@ -104,14 +110,18 @@ def work(
 
 
 def bridging(row: SignalNode) -> tuple[InnerLine, MillerTerm] | None:
-    """Give the capacitance at a node that its gain multiplies most, and the line it stands on; None without one."""
+    """Give the capacitance at a node that its gain multiplies most, and the line it stands on; None without one.
+
+    One across an inverting stage comes first; where there is none it is the one that is bootstrapped most.
+    """
     terms = [
         (line, term)
         for line in row.lines
         for term in line.capacitances
         if term.gain and not term.text.startswith(FAR_END) and not (term.factor == 2.0 and term.gain == -1.0)
     ]
-    return max(terms, key=lambda found: abs(found[1].farad * found[1].gain), default=None)
+    inverting = [found for found in terms if found[1].gain.real < 0.0]
+    return max(inverting or terms, key=lambda found: abs(found[1].farad * found[1].gain), default=None)
 
 
 def _node(
@@ -125,17 +135,20 @@ def _node(
 ) -> AtNode:
     upper = bands.upper
     main = bridging(row)
-    tau, first, gain = 0.0, math.nan, None
+    tau, plain, first, gain, multiplied = 0.0, 0.0, math.nan, None, None
     for line in row.lines:
         column = _driven(upper, z, line.at, opposite)
         ohm = float(column[upper.index(line.at)])
         first = ohm if line is row.lines[0] else first
         for term in line.capacitances:
             split = _split(bands, z, line, term, column, opposite, overall)
-            tau += ohm * farad[term.part] * factor(split)
+            times = factor(split)
+            counts = farad[term.part] * times
+            plain += counts
+            tau += ohm * counts
             if main is not None and line is main[0] and term is main[1]:
-                gain = split.gain
-    return AtNode(first, tau / first if first else math.nan, tau, gain)
+                gain, multiplied = split.gain, times
+    return AtNode(first, tau / first if first else math.nan, plain, tau, gain, multiplied)
 
 
 def _split(

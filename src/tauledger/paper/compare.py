@@ -3,20 +3,22 @@
 from __future__ import annotations
 
 import math
+import re
 from collections.abc import Mapping, Sequence
 
 from msgspec import Struct
 
-from tauledger.circuit import GROUND, fold
+from tauledger.circuit import fold
 from tauledger.devices.family import Device
-from tauledger.hand.branches import Branch, Walk, branches, total
 from tauledger.hand.equivalent import EquivalentCircuit, upper_circuit
 from tauledger.hand.estimate import HandEstimate, SignalNode
 from tauledger.hand.mirror import find_mirror, half_circuit
 from tauledger.network.bands import Bands
 from tauledger.paper.bench import Worked, bridging, work
-from tauledger.paper.page import SIGNED, Claim, Page, problem
-from tauledger.paper.slips import OVERALL_GAIN, slips, thermal_voltage
+from tauledger.paper.keys import figures_by_key, symbol_of, unit_of
+from tauledger.paper.page import Claim, Page, is_signed, problem
+from tauledger.paper.series import series_slips
+from tauledger.paper.slips import GM_FOR_G_M, INPUT_LEFT_OUT, OVERALL_GAIN, bias_network, slips, thermal_voltage
 from tauledger.quantity import engineering, percent
 from tauledger.record import PaperFigure
 
@@ -24,8 +26,9 @@ OFF = 0.02
 REPRODUCES = 0.01
 UNITS = {"resistance": "Ω", "capacitance": "F", "time_constant": "s", "miller_gain": "", "f_high": "Hz", "f_low": "Hz"}
 WORDS = {"resistance": "R", "capacitance": "C", "time_constant": "R·C", "miller_gain": "K"}
-PREFIX_UNITS = {"i": "A", "v": "V", "r": "Ω", "c": "F", "f": "Hz", "g": "S"}
 TWO_PI = 2.0 * math.pi
+
+_OWN = re.compile(r"[rg]_\w+\(.*\)")
 
 
 class Subject(Struct, frozen=True):
@@ -60,6 +63,15 @@ class Candidate(Struct, frozen=True):
     value: float
 
 
+class SlipWorked(Struct, frozen=True):
+    """The circuit worked with one slip: its id, what was done, and all that it gives; at_nodes: only nodes' count."""
+
+    slip: str
+    says: str
+    worked: Worked
+    at_nodes: bool = False
+
+
 def compare(page: Page, subject: Subject) -> tuple[PaperFigure, ...]:
     """Set every figure of the page beside hand and exact, in the order of the page.
 
@@ -67,7 +79,7 @@ def compare(page: Page, subject: Subject) -> tuple[PaperFigure, ...]:
     """
     beside = [_beside(page, claim, subject) for claim in page.claims]
     right = [_agrees(claim, at) for claim, at in zip(page.claims, beside, strict=True)]
-    worked = {} if all(right) else _worked(subject)
+    worked = () if all(right) else _worked(subject)
     return tuple(
         _figure(claim, at, subject, worked, agrees=agrees)
         for claim, at, agrees in zip(page.claims, beside, right, strict=True)
@@ -75,7 +87,7 @@ def compare(page: Page, subject: Subject) -> tuple[PaperFigure, ...]:
 
 
 def _figure(
-    claim: Claim, beside: Beside, subject: Subject, worked: Mapping[tuple[str, str], Worked], *, agrees: bool
+    claim: Claim, beside: Beside, subject: Subject, worked: Sequence[SlipWorked], *, agrees: bool
 ) -> PaperFigure:
     reference = beside.exact if beside.exact is not None else beside.hand
     off = None if reference is None else _size(claim) / _matching(claim, reference) - 1.0
@@ -85,7 +97,7 @@ def _figure(
     elif agrees:
         says = "agrees within 2 %"
     else:
-        method = _method(claim, subject) or _elsewhere(claim, subject)
+        method = _method(claim, subject) or _elsewhere(claim, subject) or _plain_sum(claim, subject)
         slip, value, says = ("", None, method) if method else _named(claim, beside, subject, worked)
     return PaperFigure(
         where=claim.name,
@@ -171,11 +183,11 @@ def _of_device(page: Page, claim: Claim, subject: Subject) -> Beside:
     if device is None:
         names = ", ".join(one.name for one in subject.devices) or "none"
         raise problem(page.path, claim.place, f"there is no device {claim.name}", f"devices here: {names}")
-    figures = dict(device.figures)
+    figures = figures_by_key(device)
     if claim.key not in figures:
         known = ", ".join(figures) or "none"
         raise problem(page.path, claim.place, f"no such figure of {device.name}: {claim.key}", f"there are {known}")
-    return Beside(f"{claim.key} of {device.name}", PREFIX_UNITS.get(claim.key[0], ""), None, figures[claim.key])
+    return Beside(f"{symbol_of(claim.key)} of {device.name}", unit_of(claim.key), None, figures[claim.key])
 
 
 def _row(claim: Claim, subject: Subject) -> SignalNode | None:
@@ -187,11 +199,11 @@ def _row(claim: Claim, subject: Subject) -> SignalNode | None:
 
 def _size(claim: Claim) -> float:
     """Take gains and currents by size: on paper a sign is left off."""
-    return abs(claim.value) if claim.key in SIGNED else claim.value
+    return abs(claim.value) if is_signed(claim.key) else claim.value
 
 
 def _matching(claim: Claim, value: float) -> float:
-    return abs(value) if claim.key in SIGNED else value
+    return abs(value) if is_signed(claim.key) else value
 
 
 def _close(claim: Claim, value: float | None, tolerance: float) -> bool:
@@ -211,7 +223,8 @@ def _method(claim: Claim, subject: Subject) -> str:
     if not near:
         return ""
     best = min(near, key=lambda row: abs(claim.value / (row.hz or math.inf) - 1.0))
-    return f"no slip: it is the {best.method}, {engineering(best.hz or 0.0, 'Hz')}, which is off by as much here"
+    method = best.method if best.method.startswith("all ") else f"the {best.method}"
+    return f"no slip: it is {method}, {engineering(best.hz or 0.0, 'Hz')}, which is off by as much here"
 
 
 def _elsewhere(claim: Claim, subject: Subject) -> str:
@@ -224,25 +237,42 @@ def _elsewhere(claim: Claim, subject: Subject) -> str:
     return ""
 
 
-def _worked(subject: Subject) -> dict[tuple[str, str], Worked]:
-    """Work the circuit once per slip; by (id, says). None where capacitors set the gain: it has no such mid-band."""
+def _plain_sum(claim: Claim, subject: Subject) -> str:
+    """Say that a capacitance is the sum of the parts with Miller's factors, those behind r_b taken in full."""
+    row = _row(claim, subject) if claim.key in ("capacitance", "time_constant") else None
+    if row is None:
+        return ""
+    plain = math.fsum(line.capacitance_f for line in row.lines)
+    exact = math.fsum(term.farad * term.exact_factor for line in row.lines for term in line.capacitances)
+    ohm = 1.0 if claim.key == "capacitance" else row.resistance_exact_ohm
+    if not any(_close(claim, ohm * value, OFF) for value in (plain, exact)):
+        return ""
+    sum_ = f"the plain sum of the parts, {engineering(plain, 'F')}"
+    says = sum_ if claim.key == "capacitance" else f"R times {sum_}"
+    effective = engineering(row.capacitance_f, "F")
+    return f"no slip: it is {says}; those that see a smaller resistance count less, in all {effective}"
+
+
+def _worked(subject: Subject) -> Sequence[SlipWorked]:
+    """Work the circuit once per slip. Nothing where capacitors set the gain: it has no such mid-band."""
     if subject.hand is None or subject.bands.gain_setting:
-        return {}
+        return ()
     circuit = upper_circuit(subject.bands, subject.devices)
-    found: dict[tuple[str, str], Worked] = {}
+    found: list[SlipWorked] = []
     for slip in slips(subject.bands, circuit, temperature_c=subject.temperature_c):
         worked = work(subject.bands, subject.hand, slip.edit, slip.factor)
         if worked is not None:
-            found[slip.id, slip.says] = worked
+            found.append(SlipWorked(slip.id, slip.says, worked, slip.at_nodes))
     if any(row.image for row in subject.hand.nodes):
         alone = work(subject.bands, subject.hand, {}, halves=False)
         if alone is not None:
-            found["half-circuit-ignored", "one half driven alone, not both in opposite phase,"] = alone
+            says = "one half driven alone, not both in opposite phase,"
+            found.append(SlipWorked("half-circuit-ignored", says, alone))
     return found
 
 
 def _named(
-    claim: Claim, beside: Beside, subject: Subject, worked: Mapping[tuple[str, str], Worked]
+    claim: Claim, beside: Beside, subject: Subject, worked: Sequence[SlipWorked]
 ) -> tuple[str, float | None, str]:
     """Name the slip whose value lies nearest to the figure, within 1 %, and that is itself off by more than 2 %."""
     right = beside.exact if beside.exact is not None else beside.hand
@@ -264,28 +294,47 @@ def _named(
     return best.slip, best.value, told + also
 
 
-def _candidates(
-    claim: Claim, beside: Beside, subject: Subject, worked: Mapping[tuple[str, str], Worked]
-) -> list[Candidate]:
+def _candidates(claim: Claim, beside: Beside, subject: Subject, worked: Sequence[SlipWorked]) -> list[Candidate]:
     found: list[Candidate] = []
-    for (slip, says), work_done in worked.items():
-        found += [Candidate(slip, says + how, value) for how, value in _values(claim, subject, slip, work_done)]
+    for one in worked:
+        if one.at_nodes and claim.kind != "node":
+            continue
+        values = _values(claim, subject, one.slip, one.worked)
+        found += [Candidate(one.slip, one.says + how, value) for how, value in values]
+    if claim.key == "gain" and beside.exact is not None:
+        found += _by_stage(subject, worked, beside.exact)
     return [*found, *_two_pi(claim, beside, subject), *_series(claim, subject), *_device_slips(claim, subject)]
 
 
 def _values(claim: Claim, subject: Subject, slip: str, worked: Worked) -> list[tuple[str, float]]:
     """Give what the changed circuit makes of the figure; of an edge by every simple method."""
-    if claim.key == "miller_gain" and slip == OVERALL_GAIN:
-        return [("", worked.gain)]
-    if claim.kind == "node":
-        row = _row(claim, subject)
-        value = getattr(worked.nodes[row.name], claim.key) if row is not None else None
-        return [] if value is None else [("", float(value))]
+    row = _row(claim, subject) if claim.kind == "node" else None
+    if row is not None:
+        at = worked.nodes[row.name]
+        values = [getattr(at, claim.key)]
+        if claim.key == "miller_gain" and slip in (OVERALL_GAIN, GM_FOR_G_M) and at.miller_factor is not None:
+            values = [at.miller_gain, 1.0 - at.miller_factor]
+        if claim.key == "capacitance":
+            values.append(at.plain)
+        if claim.key == "time_constant":
+            values.append(at.resistance * at.plain)
+        return [("", float(value)) for value in values if value is not None]
     if claim.key == "gain":
         return [("", worked.gain)]
     if claim.kind == "whole":
         return [(f" ({method})", hz) for (edge, method), hz in worked.edges.items() if edge == claim.key]
     return []
+
+
+def _by_stage(subject: Subject, worked: Sequence[SlipWorked], gain: float) -> list[Candidate]:
+    """Scale the gain by the load of the stage from which an input resistance is left out, as on paper."""
+    rows = [row for row in subject.hand.nodes if row.in_path] if subject.hand else []
+    found = []
+    for one in worked:
+        if one.slip == INPUT_LEFT_OUT:
+            ratios = [one.worked.nodes[row.name].resistance / row.resistance_exact_ohm for row in rows]
+            found.append(Candidate(one.slip, one.says, gain * max(ratios, default=1.0)))
+    return found
 
 
 def _two_pi(claim: Claim, beside: Beside, subject: Subject) -> list[Candidate]:
@@ -308,27 +357,14 @@ def _series(claim: Claim, subject: Subject) -> list[Candidate]:
     if row is None or claim.key not in ("resistance", "time_constant") or subject.hand is None:
         return []
     circuit = _drawn(subject, row)
-    if circuit is None or row.lines[0].at not in circuit.row:
-        return []
-    found = branches(circuit, row.lines[0].at, frozenset(), Walk())
+    own = {resistor.name for resistor in circuit.resistors} - {part.name for part in subject.bands.network.parts}
+    own = {name for name in own if _OWN.fullmatch(name)}
     scale = 1.0 if claim.key == "resistance" else row.time_constant_s / row.resistance_hand_ohm
-    candidates = []
-    for k, branch in enumerate(found):
-        others = [one for n, one in enumerate(found) if n != k]
-        beyond = branch.ohm - branch.link_ohm if branch.link_ohm is not None else 0.0
-        if branch.link_ohm and beyond > 0.0 and branch.far != GROUND:
-            wrong = branch.link_ohm * beyond / branch.ohm
-            value = total([*others, Branch(branch.name, wrong, branch.symbol)])
-            candidates.append(Candidate("parallel-for-series", f"{branch.name} in parallel, not in series", value))
-        for n, other in enumerate(found[k + 1 :], start=k + 1):
-            rest = [one for m, one in enumerate(found) if m not in (k, n)]
-            value = total([*rest, Branch(branch.name, branch.ohm + other.ohm, branch.symbol)])
-            says = f"{branch.name} and {other.name} in series, not in parallel"
-            candidates.append(Candidate("parallel-for-series", says, value))
-    return [Candidate(one.slip, one.says, one.value * scale) for one in candidates]
+    wrong = series_slips(circuit, row.lines[0].at, own, bias_network(subject.bands, circuit))
+    return [Candidate("parallel-for-series", says, ohm * scale) for says, ohm in wrong]
 
 
-def _drawn(subject: Subject, row: SignalNode) -> EquivalentCircuit | None:
+def _drawn(subject: Subject, row: SignalNode) -> EquivalentCircuit:
     circuit = upper_circuit(subject.bands, subject.devices)
     mirror = find_mirror(circuit)
     if mirror is None:
@@ -357,5 +393,5 @@ def _device_slips(claim: Claim, subject: Subject) -> list[Candidate]:
 
 
 def known_figures(devices: Sequence[Device]) -> Mapping[str, tuple[str, ...]]:
-    """Give for every device the keys that a page may have for it."""
-    return {device.name: tuple(symbol for symbol, _ in device.figures) for device in devices}
+    """Give for every device with figures the keys that a page may have for it."""
+    return {device.name: tuple(figures_by_key(device)) for device in devices}

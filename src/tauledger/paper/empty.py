@@ -7,15 +7,14 @@ from collections.abc import Mapping
 
 from tauledger.hand.estimate import SignalNode
 from tauledger.paper.bench import bridging
-
-UNITS = {"i": "A", "v": "V", "g": "S", "r": "ohm", "c": "F", "f": "Hz"}
+from tauledger.paper.keys import unit_of
 
 _BARE = re.compile(r"[A-Za-z0-9_-]+")
 _HEAD = """# Figures from paper for {title}
 # Write what you worked out, take the # away, leave the rest; then:
 #   tauledger review {netlist} --paper {page}
 # Values are numbers in SI units, or texts as in a netlist: 605, "2.2k", "690k", "33p".
-# Signs of gains do not matter. Each figure is set beside hand and exact; where it is
+# Signs of gains do not matter; "61.5 dB" is a gain too. Each figure is set beside hand and exact; where it is
 # off by more than 2 %, the known slips are tried and the one that gives it is named.
 
 #f_high = ""          # Hz, -3 dB
@@ -53,7 +52,7 @@ def empty_page(
         told.append(f"\n[device.{_key(name)}]\n")
         for key in keys:
             entry = f'#{key} = ""'
-            told.append(f"{entry:<22}# {UNITS.get(key[0], '')}\n")
+            told.append(f"{entry:<22}# {unit_of(key).replace('Ω', 'ohm')}\n")
     return "".join(told)
 
 

@@ -1,6 +1,6 @@
 """A designer's page as read: figures with the line they stand on. TOML v1.0, with tables and keys of our own.
 
-f_high = "690k"            # Hz; f_low and gain (V/V, or the unit of the gain) likewise
+f_high = "690k"            # Hz; f_low and gain (V/V, or the unit of the gain; "61.5 dB") likewise
 [node.b]                   # a signal node by its name in the netlist
 resistance = 605           # ohm; capacitance F, time_constant s, miller_gain (v at the far end over v here)
 [device.Q1]                # a device by its name; keys are those of its operating point
@@ -18,15 +18,23 @@ from msgspec import Struct
 
 from tauledger.errors import Diagnostic, InputError, NetlistError
 from tauledger.netlist.numbers import read_number
+from tauledger.paper.keys import SIGNED_PREFIXES
 
 WHOLE = ("f_high", "f_low", "gain")
 AT_NODE = ("resistance", "capacitance", "time_constant", "miller_gain")
 TABLES = ("node", "device")
-SIGNED = ("gain", "miller_gain", "i_c", "v_ce", "i_d", "v_ds")
+GAINS = ("gain", "miller_gain")
+
+MOST_DECIBEL = 1000.0
 
 _HEADER = re.compile(r"\s*\[([^\[\]]+)\]\s*(?:#.*)?$")
 _KEY = re.compile(r"""\s*((?:[A-Za-z0-9_-]+|"[^"]*"|'[^']*')(?:\s*\.\s*(?:[A-Za-z0-9_-]+|"[^"]*"|'[^']*'))*)\s*=""")
 _PART = re.compile(r"""[A-Za-z0-9_-]+|"[^"]*"|'[^']*'""")
+_SPACED = re.compile(r"([+-]?[\d.]+(?:[eE][+-]?\d+)?)\s+(?=[^\s\d])")
+_DECIBEL = re.compile(r"(.*[\d.])\s*dB", re.IGNORECASE)
+_RATIO = re.compile(r"(?:\s+1|\s*[VA])?\s*/\s*[VA]")
+_MEGA = re.compile(r"[^A-Za-z]*M(Hz|ohm|Ω)?")
+_FARAD = re.compile(r"[\d.]+(?:[eE][+-]?\d+)?\s*F")
 _WHERE = re.compile(r"\(at line (\d+), column (\d+)\)")
 
 
@@ -78,6 +86,11 @@ def read_page(text: str, path: str) -> Page:
     return Page(path, tuple(sorted(claims, key=lambda claim: claim.place.line)))
 
 
+def is_signed(key: str) -> bool:
+    """Tell whether a figure may be negative: gains, currents and voltages."""
+    return key in GAINS or key.startswith(SIGNED_PREFIXES)
+
+
 def problem(path: str, place: Place, message: str, hint: str) -> NetlistError:
     """Give the error that points at a place on the page."""
     width = len(place.text[place.column - 1 :].split("=")[0].split("#")[0].rstrip()) or 1
@@ -112,17 +125,34 @@ def _value(path: str, place: Place, key: str, value: Any) -> float:
     hint = 'write a number, or a text as in a netlist: "2.2k", "690k", "33p"'
     number: float | None = None
     if isinstance(value, str):
-        read = read_number(value.strip())
-        number = read.value if read is not None and not read.tail else None
-        if re.fullmatch(r"[^A-Za-z]*M(Hz)?", value.strip()):
-            raise problem(path, place, f'{key} = "{value}": M is milli in SPICE', "write meg for 10^6, m for 10^-3")
+        number = _text(path, place, key, value)
     elif isinstance(value, int | float) and not isinstance(value, bool):
         number = float(value)
     if number is None or not math.isfinite(number):
         raise problem(path, place, f"{key} is not a number", hint)
-    if number == 0.0 or (number < 0.0 and key not in SIGNED):
-        raise problem(path, place, f"{key} must be {'positive' if key not in SIGNED else 'other than 0'}", hint)
+    if number == 0.0 or (number < 0.0 and not is_signed(key)):
+        raise problem(path, place, f"{key} must be {'other than 0' if is_signed(key) else 'positive'}", hint)
     return number
+
+
+def _text(path: str, place: Place, key: str, text: str) -> float | None:
+    """Read a text as a netlist has it, its unit after a blank or not; a gain may be in dB. None: no number."""
+    text = text.strip()
+    if _MEGA.fullmatch(text):
+        raise problem(path, place, f'{key} = "{text}": M is milli in SPICE', "write meg for 10^6, m for 10^-3")
+    if _FARAD.fullmatch(text):
+        raise problem(path, place, f'{key} = "{text}": F is femto in SPICE', 'write "33p" or 33e-12 for 33 pF')
+    decibel = _DECIBEL.fullmatch(text)
+    if decibel is not None:
+        if key not in GAINS:
+            raise problem(path, place, f'{key} = "{text}": only a gain is in dB', f"there are {', '.join(GAINS)}")
+        level = read_number(decibel.group(1))
+        return None if level is None or level.tail or abs(level.value) > MOST_DECIBEL else 10 ** (level.value / 20.0)
+    if key in (*GAINS, "gm_over_i"):
+        ratio = _RATIO.search(text)
+        text = text[: ratio.start()] if ratio is not None and ratio.end() == len(text) else text
+    read = read_number(_SPACED.sub(r"\1", text, count=1))
+    return None if read is None or read.tail else read.value
 
 
 def _find(lines: list[str], wanted: tuple[str, ...]) -> Place:

@@ -13,6 +13,7 @@ from msgspec import Struct
 
 from tauledger.circuit import GROUND
 from tauledger.devices.parts import Part
+from tauledger.hand.elements import Cell
 from tauledger.hand.equivalent import EquivalentCircuit
 from tauledger.hand.nodes import crossing
 from tauledger.network.bands import Bands
@@ -23,6 +24,8 @@ ZERO_CELSIUS = 273.15
 SHORTED = 1e7
 RESTS = 0.05
 OVERALL_GAIN = "overall-gain"
+GM_FOR_G_M = "gm-for-G_m"
+INPUT_LEFT_OUT = "input-resistance-left-out"
 CONTROL_WORDS = ("base", "gate", "input")
 SERIES_AT_CONTROL = ("g_b", "r_b", "g_g")
 LOAD_CHARGES = ("c_sub", "c_cs", "c_js", "c_db", "c_bd")
@@ -32,12 +35,14 @@ class Slip(Struct, frozen=True):
     """One slip. id: fixed. says: what was done, as an engineer would say it.
 
     edit: factor on the value of each part that it changes. factor: Miller's factor as the slip has it.
+    at_nodes: it is looked for in the figures of nodes alone.
     """
 
     id: str
     says: str
     edit: Edit
     factor: Factor = miller_factor
+    at_nodes: bool = False
 
 
 def slips(bands: Bands, circuit: EquivalentCircuit, *, temperature_c: float) -> tuple[Slip, ...]:
@@ -51,10 +56,11 @@ def slips(bands: Bands, circuit: EquivalentCircuit, *, temperature_c: float) -> 
         Slip("r_o-forgotten", "r_o forgotten", _each(r_o, 0.0)),
         Slip("load-forgotten", "the load forgotten", _each(load, 0.0)),
         Slip("r_o-and-load-forgotten", "r_o and the load forgotten", _each((*r_o, *load), 0.0) if r_o and load else {}),
-        Slip("bias-twice", "the bias network counted twice", _each(_bias(bands, circuit), 2.0)),
+        Slip("bias-twice", "the bias network counted twice", _each(bias_network(bands, circuit), 2.0)),
         Slip("r_b-forgotten", "r_b forgotten", _each(_labelled(parts, SERIES_AT_CONTROL), SHORTED)),
         *_thermal_voltage(parts, temperature_c),
-        Slip("gm-for-G_m", "gm taken for G_m = gm/(1 + gm·R_E)", _each(_degeneration(bands, circuit), SHORTED)),
+        *_input_resistances(parts, circuit),
+        *_undegenerated(bands, circuit),
         Slip(OVERALL_GAIN, "the overall gain taken for the gain of the bridged nodes", {}, _overall),
         Slip("A-for-1-plus-A", "|A| taken for 1 + |A|", {}, _without_one),
         Slip("c_mu-not-multiplied", "C_μ not multiplied", {}, _not_multiplied),
@@ -133,7 +139,7 @@ def _load_capacitance(bands: Bands) -> list[str]:
     ]
 
 
-def _bias(bands: Bands, circuit: EquivalentCircuit) -> list[str]:
+def bias_network(bands: Bands, circuit: EquivalentCircuit) -> list[str]:
     """Name the resistors from a base or gate to AC ground or to a node at rest; the driven source's is none of them."""
     inputs = {t.outer for t in circuit.terminals if t.word in CONTROL_WORDS and t.outer != GROUND}
     found = []
@@ -148,22 +154,71 @@ def _bias(bands: Bands, circuit: EquivalentCircuit) -> list[str]:
     return found
 
 
-def _degeneration(bands: Bands, circuit: EquivalentCircuit) -> list[str]:
+def _input_resistances(parts: Sequence[Part], circuit: EquivalentCircuit) -> list[Slip]:
+    """Leave out what a base draws, one transistor at a time; seen from outside, its r_b goes with it."""
+    loading = [cell.owner for cell in circuit.cells if cell.control != GROUND and not cell.diode_connected]
+    return [
+        Slip(INPUT_LEFT_OUT, f"the input resistance of {owner} left out", _each(names, 0.0) | series)
+        for owner in dict.fromkeys(loading)
+        if (names := [part.name for part in parts if part.owner == owner and part.label == "g_pi"])
+        for series in (
+            {},
+            _each((part.name for part in parts if part.owner == owner and part.label in SERIES_AT_CONTROL), SHORTED),
+        )
+    ]
+
+
+def _undegenerated(bands: Bands, circuit: EquivalentCircuit) -> list[Slip]:
+    """Take gm for G_m: in all of the circuit, or in Miller's factors alone, with C_π bootstrapped there or not."""
+    degeneration = {cell.owner: _degeneration(bands, circuit, cell) for cell in circuit.cells}
+    ratio = {
+        cell.owner: 1.0 + cell.gm * _common_ohm(bands, cell, degeneration[cell.owner])
+        for cell in circuit.cells
+        if cell.output != GROUND and degeneration[cell.owner]
+    }
+    owner = {part.name: part.owner for part in bands.network.parts}
+    says = "gm taken for G_m = gm/(1 + gm·R_E)"
+    shorted = dict.fromkeys((name for names in degeneration.values() for name in names), SHORTED)
+    if not shorted:
+        return []
+
+    def bootstrapped(split: Split) -> float:
+        plain = split.grounded or split.mirrored or split.far_end or split.gain >= 0.0
+        return miller_factor(split) if plain else 1.0 - split.gain * ratio.get(owner[split.part], 1.0)
+
+    def not_bootstrapped(split: Split) -> float:
+        shunted = owner[split.part] in ratio and 0.0 < split.gain < 1.0 and not split.far_end
+        return 1.0 if shunted else bootstrapped(split)
+
+    return [
+        Slip(GM_FOR_G_M, says, shorted),
+        *(Slip(GM_FOR_G_M, says, {}, factor, at_nodes=True) for factor in (bootstrapped, not_bootstrapped) if ratio),
+    ]
+
+
+def _degeneration(bands: Bands, circuit: EquivalentCircuit, cell: Cell) -> list[str]:
     """Name the resistances between the common node of an inverting cell and AC ground, its own series one included."""
+    if cell.common == GROUND or cell.diode_connected:
+        return []
+    outer = next((t.outer for t in circuit.terminals if t.inner == cell.common), cell.common)
     found = []
-    for cell in circuit.cells:
-        if cell.common == GROUND or cell.diode_connected:
+    for part in bands.network.parts:
+        if part.kind != "conductance" or part.label in ("g_pi", "g_o"):
             continue
-        outer = next((t.outer for t in circuit.terminals if t.inner == cell.common), cell.common)
-        for part in bands.network.parts:
-            if part.kind != "conductance" or part.label in ("g_pi", "g_o"):
-                continue
-            ends = {circuit.at[node] for node in part.nodes}
-            own = part.owner == cell.owner and ends == {cell.common, outer}
-            far = next(iter(ends - {outer}), outer)
-            if own or (outer in ends and not part.label and far != outer and _rests(circuit, far)):
-                found.append(part.name)
-    return list(dict.fromkeys(found))
+        ends = {circuit.at[node] for node in part.nodes}
+        own = part.owner == cell.owner and ends == {cell.common, outer}
+        far = next(iter(ends - {outer}), outer)
+        if own or (outer in ends and not part.label and far != outer and _rests(circuit, far)):
+            found.append(part.name)
+    return found
+
+
+def _common_ohm(bands: Bands, cell: Cell, names: Sequence[str]) -> float:
+    """Add what is between a cell's common node and AC ground: its own series resistance and the others in parallel."""
+    parts = [part for part in bands.network.parts if part.name in names]
+    own = math.fsum(1.0 / part.value for part in parts if part.owner == cell.owner)
+    outside = math.fsum(part.value for part in parts if part.owner != cell.owner)
+    return own + (1.0 / outside if outside else 0.0)
 
 
 def _rests(circuit: EquivalentCircuit, node: str) -> bool:
