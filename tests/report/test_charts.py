@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 import re
+from collections.abc import Callable
 from functools import cache
 from xml.etree import ElementTree
 
@@ -158,3 +159,14 @@ def test_a_pair_of_poles_stands_on_both_sides_of_the_axis() -> None:
 def test_where_there_is_nothing_to_show_there_is_no_chart(name: str) -> None:
     empty = replace(ECHO_PREAMP, nodes=(), parts=(), steps=(), curves=None, poles=(), zeros=())
     assert CHARTS[name](empty) == ""
+
+
+@pytest.mark.parametrize("draw", [time_chart, share_chart, way_chart], ids=["time", "shares", "way"])
+def test_a_small_screen_gets_every_number_in_letters_of_the_same_size(draw: Callable[..., str]) -> None:
+    small, large = draw(ECHO_PREAMP, narrow=True), draw(ECHO_PREAMP)
+    widths = [float(re.search(r'viewBox="0 0 ([\d.]+)', svg).group(1)) for svg in (small, large)]  # type: ignore[union-attr]
+    assert widths[0] < 0.5 * widths[1]
+    told = " ".join(texts(small))
+    values = [text for text in texts(large) if re.search(r"\d (?:kHz|ns|%)", text)]
+    assert len(values) >= 4
+    assert all(value in told for value in values)

@@ -67,8 +67,8 @@ def plane_chart(review: Review) -> str:
         axes.set_ylim(-half, half)
         axes.set_aspect("equal")
         axes.set_axis_off()
-        axes.text(-outermost - 0.2, half, "falls off: stable", va="top", ha="left", color=light("muted"))
-        axes.text(right_edge, half, "grows", va="top", ha="right", color=light("muted"))
+        axes.text(-outermost - 0.2, -half, "falls off: stable", va="bottom", ha="left", color=light("muted"))
+        axes.text(right_edge, -half, "grows", va="bottom", ha="right", color=light("muted"))
         told = "; ".join(f"{root.name} {number(root.size_hz, 'Hz')}" for root in roots)
         return to_svg(figure, key="plane", title=f"Poles and zeros in the s-plane: {told}")
 
