@@ -158,6 +158,46 @@ def test_hand_model_of_a_fitted_transistor_is_its_low_frequency_gain(case: str, 
     assert gain == pytest.approx(cell.gm * load / degeneration * divider, rel=0.05)
 
 
+def test_a_body_tied_to_its_source_changes_no_figure(tmp_path: Path, engine: Engine) -> None:
+    for case in ("bsim4 saturation", "bsim4 triode", "bsim4 pmos", "bsim3 impact ionisation", "vbic saturated"):
+        apart, tied = (solved(CASES[case].replace(" g 0 b m", f" g 0 {body} m"), tmp_path, engine) for body in "b0")
+        expected, found = (dict(device_of(numbers).figures) for numbers in (apart, tied))
+        assert found == pytest.approx(expected, rel=1e-6, abs=0), case
+        assert device_of(tied).region == device_of(apart).region
+        assert tied.agreement is not None
+        assert tied.agreement.max_relative_error <= AGREES
+
+
+@pytest.mark.parametrize("polarity", ["n", "p"])
+def test_a_diode_connected_transistor_keeps_its_own_gm_and_r_o(polarity: str, tmp_path: Path, engine: Engine) -> None:
+    # a 0 V source between gate and drain leaves the bias alone and keeps the two terminals apart
+    sign = "-" if polarity == "p" else ""
+    text = stage("M1 d d 0 0 m w=10u l=0.2u", f"{polarity}mos{BSIM4.format(sign=sign)}", float(f"{sign}1.5"), 0, "100k")
+    tied = solved(text.replace("VIN in 0 DC 0 AC 1", "IIN 0 d AC 1").replace("RS in g 1k\n", ""), tmp_path, engine)
+    apart = solved(
+        text.replace("M1 d d ", "M1 d g ")
+        .replace("VIN in 0 DC 0 AC 1", "IIN 0 d AC 1")
+        .replace("RS in g 1k\n", "VT g d 0\n"),
+        tmp_path,
+        engine,
+    )
+    expected, found = (dict(device_of(numbers).figures) for numbers in (apart, tied))
+    assert found["gm"] > 10.0 / found["r_o"]
+    assert found == pytest.approx(expected, rel=1e-6, abs=0)
+    assert device_of(tied).region == device_of(apart).region == "weak inversion"
+    assert tied.agreement is not None
+    assert tied.agreement.max_relative_error <= AGREES
+
+
+@pytest.mark.parametrize(("drive", "region"), [(0.35, "weak inversion"), (0.7, "saturation")])
+def test_polarity_makes_no_difference_to_the_region(drive: float, region: str, tmp_path: Path, engine: Engine) -> None:
+    # what the engine tells of a p-channel device has its polarity taken out, the threshold voltage too
+    for sign, kind in (("", "nmos"), ("-", "pmos")):
+        side = float(f"{sign}1")
+        text = stage("M1 d g 0 b m w=10u l=0.2u", f"{kind}{BSIM4.format(sign=sign)}", 1.5 * side, drive * side, "1k")
+        assert device_of(solved(text, tmp_path, engine)).region == region
+
+
 def test_a_delay_inside_a_fitted_transistor_is_refused_at_its_model(tmp_path: Path) -> None:
     path = tmp_path / "stage.cir"
     path.write_text(CASES["quasi-saturation active"].replace("rco=100", "rco=100 ptf=30"))

@@ -10,7 +10,7 @@ from __future__ import annotations
 import math
 from collections.abc import Callable, Mapping
 
-from tauledger.circuit import Circuit, Element, Model, terminals_of
+from tauledger.circuit import Circuit, Element, Model
 from tauledger.devices.bsim import BSIM3_LEVELS, BSIM4_LEVELS
 from tauledger.devices.bsim3_parameters import MODEL_PARAMETERS as BSIM3_PARAMETERS
 from tauledger.devices.bsim4_parameters import MODEL_PARAMETERS as BSIM4_PARAMETERS
@@ -55,8 +55,8 @@ def isolated(inner: tuple[str, ...]) -> Callable[[Circuit, Element, Bias], Isola
     def isolate(_circuit: Circuit, element: Element, bias: Bias) -> Isolation:
         from tauledger.devices.fit import frequencies
 
-        volts = tuple(float(bias.voltages[node]) for node in terminals_of(element))
-        return Isolation(element.name, volts, frequencies(), inner=inner)
+        volts = tuple(float(bias.voltages[node]) for node in element.nodes)
+        return Isolation(element.name, volts, frequencies(), inner=inner, each_node=True)
 
     return isolate
 
@@ -67,13 +67,13 @@ def bipolar(circuit: Circuit, element: Element, bias: Bias) -> Device:
     Raises EngineError where no matrices describe it.
     """
     from tauledger.devices.fit import fit
-    from tauledger.devices.reduced import hybrid_pi, with_remainder
+    from tauledger.devices.reduced import hybrid_pi, placed, with_remainder
 
-    samples = bias.samples[element.name]
-    found, name = fit(samples), element.name
+    found, name = fit(bias.samples[element.name]), element.name
     c, b, e = (circuit.nodes[node] for node in element.nodes[:3])
     s = circuit.nodes[element.nodes[3]] if len(element.nodes) > 3 else None
-    elements = hybrid_pi(name, samples.terminals, found, (c, b, e, s))
+    ports = BIPOLAR_TERMINALS[: len(element.nodes)]
+    elements = hybrid_pi(name, ports, found, ("collector", "base", "emitter", None if s is None else "substrate"))
     value = {part.label: part.value for part in elements}
     model = circuit.model(element.model)
     sign = 1.0 if model.type == "npn" else -1.0
@@ -104,7 +104,10 @@ def bipolar(circuit: Circuit, element: Element, bias: Bias) -> Device:
         figures=tuple((symbol, number) for symbol, number in figures if number is not None),
         terminals=tuple(terminals),
         cell=cell,
-        parts=with_remainder(name, samples.terminals, found, elements),
+        parts=placed(
+            with_remainder(name, ports, found, elements),
+            {port: circuit.nodes[node] for port, node in zip(ports, element.nodes, strict=True)},
+        ),
     )
 
 
@@ -115,15 +118,15 @@ def field_effect(circuit: Circuit, element: Element, bias: Bias) -> Device:
     Raises EngineError where no matrices describe it.
     """
     from tauledger.devices.fit import fit
-    from tauledger.devices.reduced import quasi_static, with_remainder
+    from tauledger.devices.reduced import placed, quasi_static, with_remainder
 
-    samples = bias.samples[element.name]
-    found, name = fit(samples), element.name
+    found, name = fit(bias.samples[element.name]), element.name
     d, g, s = (circuit.nodes[node] for node in element.nodes[:3])
     b = circuit.nodes[element.nodes[3]] if len(element.nodes) > 3 else None
-    forward = quasi_static(name, samples.terminals, found, (d, g, s, b))
+    ports, body = MOS_TERMINALS[: len(element.nodes)], None if b is None else "body"
+    forward = quasi_static(name, ports, found, ("drain", "gate", "source", body))
     turned = any(part.label == "gm" and part.value < 0.0 for part in forward)
-    elements = quasi_static(name, samples.terminals, found, (s, g, d, b)) if turned else forward
+    elements = quasi_static(name, ports, found, ("source", "gate", "drain", body)) if turned else forward
     value = {part.label: part.value for part in elements}
     gm, g_o, g_mb = (value.get(label, 0.0) for label in ("gm", "g_o", "g_mb"))
     kind = circuit.model(element.model).type
@@ -131,7 +134,7 @@ def field_effect(circuit: Circuit, element: Element, bias: Bias) -> Device:
     read = readings_of(bias, element)
     ampere = next((sign * read[name] for name in CURRENTS[element.letter] if name in read), math.nan)
     ends = Ends(d, g, s, b, d, s, turned)
-    gate = samples.terminals.index(g)
+    gate = ports.index("gate")
     told = figures(
         bias,
         element,
@@ -145,19 +148,22 @@ def field_effect(circuit: Circuit, element: Element, bias: Bias) -> Device:
     return Device(
         name=name,
         kind=kind,
-        region=_region(read, sign, gm, g_o, turned=turned),
+        region=_region(read, gm, g_o, turned=turned),
         # models that do not tell their current leave out what follows from it
         figures=tuple((symbol, number) for symbol, number in told if math.isfinite(number)),
         terminals=ends.terminals(),
         cell=cell_of(name, ends, gm, g_o, g_mb) if len({d, g, s}) == 3 else None,
-        parts=with_remainder(name, samples.terminals, found, elements),
+        parts=placed(
+            with_remainder(name, ports, found, elements),
+            {port: circuit.nodes[node] for port, node in zip(ports, element.nodes, strict=True)},
+        ),
     )
 
 
-def _region(read: Mapping[str, float], sign: float, gm: float, g_o: float, *, turned: bool) -> str:
+def _region(read: Mapping[str, float], gm: float, g_o: float, *, turned: bool) -> str:
     """Name the region: by threshold and saturation voltage where the engine tells them, else by gm and g_ds."""
     if {*THRESHOLDS, "id"} <= read.keys():
-        return mos_region(read["vgs"], read["vds"], sign * read["vth"], read["vdsat"], read["id"])
+        return mos_region(read["vgs"], read["vds"], read["vth"], read["vdsat"], read["id"])
     if gm < OFF_SIEMENS:
         return "off"
     word = "triode" if g_o > gm else "saturation"

@@ -4,7 +4,8 @@ The elements are those of the terminals at rest, Y(s) = G₀ + s·C₀ + …: th
 −G_bc, g_π = −G_be, gm = G_cb − G_bc, C_μ = −C_bc, C_π = −C_be; of a field-effect transistor gm = G_dg, g_mb = G_db,
 C_gs = −C_gs of the charge matrix and so on. The remainder (a block) is the fit less these elements, so that both
 together are the instance exactly: series resistances, transit times, and charge that is not reciprocal (C_cb ≠ C_bc)
-are in it.
+are in it. All this is told apart between the instance's own terminals; only then `placed` puts it at the circuit's
+nodes, where two of them may be one: g_o of a transistor whose body is tied to its source is still g_o.
 
 Sources: Gray, Hurst, Lewis and Meyer, "Analysis and Design of Analog Integrated Circuits", 5th ed., 2009, section 1.4
 (hybrid-π); Tsividis and McAndrew, "Operation and Modeling of the MOS Transistor", 3rd ed., 2011, chapters 6 and 7
@@ -13,9 +14,10 @@ Sources: Gray, Hurst, Lewis and Meyer, "Analysis and Design of Analog Integrated
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable
+from collections.abc import Callable, Iterable, Mapping
 
 import numpy as np
+from msgspec.structs import replace
 
 from tauledger.devices.family import inner_node
 from tauledger.devices.fit import Fit, Real
@@ -29,7 +31,7 @@ NEGLIGIBLE = 1e-12
 def hybrid_pi(owner: str, nodes: tuple[str, ...], fit: Fit, ends: tuple[str, str, str, str | None]) -> tuple[Part, ...]:
     """Give a bipolar transistor's elements between its terminals; ends: collector, base, emitter, substrate.
 
-    nodes: the terminals' names in the order of the fit.
+    nodes: the terminals' names in the order of the fit, all different.
     """
     c, b, e, s = ends
     g, cap = _entry(nodes, fit.at_rest()[0]), _entry(nodes, fit.at_rest()[1])
@@ -96,6 +98,29 @@ def with_remainder(owner: str, nodes: tuple[str, ...], fit: Fit, elements: Itera
     return (*elements, block(owner, (*nodes, *inner), _rows(g), _rows(c), REMAINDER))
 
 
+def placed(parts: Iterable[Part], nodes: Mapping[str, str]) -> tuple[Part, ...]:
+    """Put parts between terminals at the circuit's nodes, by terminal; inner nodes, which are not named, stay.
+
+    An element with its ends, or its control's ends, at one node does nothing and is left out; rows and columns of a
+    block that come to one node are added.
+    """
+    found = []
+    for part in parts:
+        at = tuple(nodes.get(node, node) for node in part.nodes)
+        if part.kind == "block":
+            found.append(_joined(part, at))
+        elif at[0] != at[1] and at[-2] != at[-1]:
+            found.append(replace(part, nodes=at))
+    return tuple(found)
+
+
+def _joined(part: Part, at: tuple[str, ...]) -> Part:
+    distinct = tuple(dict.fromkeys(at))
+    place = np.array([[float(node == other) for other in distinct] for node in at])
+    g, c = (_rows(place.T @ np.array(matrix) @ place) for matrix in (part.conductances, part.capacitances))
+    return block(part.owner, distinct, g, c, part.label)
+
+
 def _entry(nodes: tuple[str, ...], matrix: Real) -> Callable[[str, str], float]:
     at = {node: k for k, node in enumerate(nodes)}
 
@@ -106,14 +131,13 @@ def _entry(nodes: tuple[str, ...], matrix: Real) -> Callable[[str, str], float]:
 
 
 def _kept(found: list[Part], fit: Fit) -> tuple[Part, ...]:
-    """Leave out what stands between one node and itself, is rounding, or would be negative but for a gm."""
+    """Leave out what is rounding, or would be negative but for a gm."""
     g0, c0 = fit.at_rest()
     least = {"capacitance": NEGLIGIBLE * float(np.abs(c0).max())}
     kept = []
     for part in found:
-        joined = part.nodes[0] == part.nodes[1] or part.nodes[-2] == part.nodes[-1]
         size = abs(part.value) if part.kind == "transconductance" else part.value
-        if not joined and size > least.get(part.kind, NEGLIGIBLE * float(np.abs(g0).max())):
+        if size > least.get(part.kind, NEGLIGIBLE * float(np.abs(g0).max())):
             kept.append(part)
     return tuple(kept)
 
