@@ -29,7 +29,7 @@ _SYMBOL = re.compile(
     r"(?<![\w.])(d?[CIVRrfgQ]|G(?=_m))_(H|L|T|C|D|E|B|G|S|CE|DS|GS|Th|o|b|e|c|s|d|m|π|μ|bx|be|bc|ds|gs|gd|sb|db|gb|mb|sub)"
     r"(?!\w)"
 )
-_COEFFICIENT = re.compile(r"\bb([₁₂])")
+_COEFFICIENT = re.compile(r"\b([ab])([₁₂])")
 
 
 class Drawn(Struct, frozen=True):
@@ -91,7 +91,7 @@ def typeset(text: str) -> Markup:
 
     joined = BEFORE_A_UNIT.sub("\u00a0", _MINUS.sub("−", text))
     symbols = _SYMBOL.sub(r"\1<sub>\2</sub>", str(escape(joined)))
-    return Markup(_COEFFICIENT.sub(lambda found: f"<i>b</i><sub>{'₁₂'.index(found.group(1)) + 1}</sub>", symbols))
+    return Markup(_COEFFICIENT.sub(lambda found: f"<i>{found[1]}</i><sub>{'₁₂'.index(found[2]) + 1}</sub>", symbols))
 
 
 def subscripted(svg: str) -> str:

@@ -249,7 +249,7 @@ def _what_sets_the_lower_edge(review: Review) -> str:
     best = next((e for e in review.estimates if e.edge == "f_low" and e.recommended), None)
     if best is not None and best.hz is not None and best.difference is not None:
         gives = f"{number(best.hz, 'Hz')}, {move(best.difference)}"
-        text += f" The method to use here, {method_title(best.method)}, gives {gives}."
+        text += f" The method to use here, {method_title(best.method, best.edge)}, gives {gives}."
     return text
 
 
@@ -264,7 +264,7 @@ def _does_paper_agree(review: Review) -> str:
         text += f"; the sum of time constants gives {number(summed.hz, 'Hz')}, {move(summed.difference)}"
     best = next((e for e in review.estimates if e.edge == "f_high" and e.recommended), None)
     if best is not None and best.method != "sum of time constants" and best.difference is not None:
-        text += f"; the method to use here, {method_title(best.method)}, {move(best.difference)}"
+        text += f"; the method to use here, {method_title(best.method, best.edge)}, {move(best.difference)}"
     text += "."
     differ = (cause for cause in review.causes if not cause.on_paper)
     cause = next((cause for cause in differ if EDGE.get(cause.quantity, cause.quantity) == "f_H"), None)

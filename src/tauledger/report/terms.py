@@ -37,7 +37,8 @@ TERMS = {
     ),
     "Coefficients b₁, b₂": (
         "the gain falls as 1/(1 + b₁·s + b₂·s² + …) above mid-band. b₁ is the exact sum of all time constants, in s; "
-        "1/b₁ and b₁/b₂ are angular frequencies, in Hz divided by 2π. They have nothing to do with a node called b1."
+        "1/b₁ and b₁/b₂ are angular frequencies, in Hz divided by 2π. Below mid-band a₁, in rad/s, is the exact sum of "
+        "the lower edges, and a₂/a₁ the second pole. They have nothing to do with nodes called a1 or b1."
     ),
     "σ": (
         "how strongly the capacitances load each other: 1 means not at all, a small number that the poles "

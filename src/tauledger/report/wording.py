@@ -15,9 +15,11 @@ _RATIOS = ("", "V/V", "A/A")
 _PART_UNIT = {"capacitance": "F", "transcapacitance": "F", "inductance": "H", "C": "F", "L": "H", "R": "Ω"}
 _PART_UNIT |= {"mutual inductance": "H"}
 
-# A coefficient stands after a fraction bar or a product, before "/b2", or after the word; a node of that name does not.
+# A coefficient stands after or before a fraction bar, after a product or a root, or in a phrase; a node of that name
+# does not.
 _COEFFICIENT = re.compile(
-    r"(?:(?<=[/·])|(?<=coefficients )|(?<=coefficients b1, ))b([12])\b|\bb(1)(?=/(?:b2\b|\(2π·b2\b))"
+    r"(?<=[/·√])[ab][12]\b|\b[ab][12](?=/(?:[ab][12]\b|\(?2π))|\ba1(?= is the first)"
+    r"|(?:(?<!nodes )(?<!between )\b(?:a1 and a2|b1 and b2)|(?<=coefficients )(?:a1, a2|b1, b2))\b"
 )
 EDGE = {"f_high": "f_H", "f_low": "f_L"}
 
@@ -97,7 +99,7 @@ def figure_symbols(device: DeviceFacts, parts: Iterable[PartRow]) -> tuple[str, 
 
 def coefficients(text: str) -> str:
     """Set the coefficients of the denominator apart from nodes of the same name: "1/(2π·b1)" → "1/(2π·b₁)"."""
-    return _COEFFICIENT.sub(lambda found: "b₂" if found.group(1) == "2" else "b₁", text)
+    return _COEFFICIENT.sub(lambda found: re.sub(r"(?<=[ab])[12]", lambda k: "₁₂"[int(k.group()) - 1], found[0]), text)
 
 
 def part_title(name: str, owner: str) -> str:

@@ -23,13 +23,16 @@ STEP_TITLES = {
     "simulated": "simulated",
     "exact": "exact",
 }
-LOWER_TITLES = {"lowest": "highest edge alone", "all-nodes": "a pole for each capacitor"}
+LOWER_TITLES = {
+    "lowest": "highest edge alone",
+    "all-nodes": "a pole for each capacitor",
+    "two-coefficients": "two coefficients a₁, a₂",
+}
 METHODS = {
     "lowest node alone": "slowest node alone",
     "all nodes together": "a pole of its own for each node",
     "highest capacitor alone": "capacitor with the highest edge alone",
     "all capacitors together": "a pole of its own for each capacitor",
-    "two coefficients": "two coefficients b₁, b₂",
 }
 
 
@@ -42,8 +45,10 @@ class Told(Struct, frozen=True):
     why: str
 
 
-def method_title(method: str) -> str:
-    """Name a method so that it says what is done with what."""
+def method_title(method: str, edge: str) -> str:
+    """Name a method for an edge ("f_high", "f_low") so that it says what is done with what."""
+    if method == "two coefficients":
+        return f"{method} {'b₁, b₂' if edge == 'f_high' else 'a₁, a₂'}"
     return METHODS.get(method, method)
 
 
@@ -94,7 +99,7 @@ def methods_table(review: Review, edge: str) -> Grid:
     rows = [
         GridRow(
             (
-                method_title(estimate.method) + (" (recommended)" if estimate.recommended else ""),
+                method_title(estimate.method, edge) + (" (recommended)" if estimate.recommended else ""),
                 number(estimate.hz, "Hz"),
                 NO_NUMBER if estimate.difference is None else move(estimate.difference),
             )
