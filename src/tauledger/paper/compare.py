@@ -90,14 +90,19 @@ def _figure(
     claim: Claim, beside: Beside, subject: Subject, worked: Sequence[SlipWorked], *, agrees: bool
 ) -> PaperFigure:
     reference = beside.exact if beside.exact is not None else beside.hand
-    off = None if reference is None else _size(claim) / _matching(claim, reference) - 1.0
+    off = None if not reference else _size(claim) / _matching(claim, reference) - 1.0
     slip, value, says = "", None, ""
-    if reference is None:
+    if not reference:
         says = "there is nothing to set beside it"
     elif agrees:
         says = "agrees within 2 %"
     else:
-        method = _method(claim, subject) or _elsewhere(claim, subject) or _plain_sum(claim, subject)
+        method = (
+            _method(claim, subject)
+            or _by_hand(claim, beside)
+            or _elsewhere(claim, subject)
+            or _plain_sum(claim, subject)
+        )
         slip, value, says = ("", None, method) if method else _named(claim, beside, subject, worked)
     return PaperFigure(
         where=claim.name,
@@ -225,6 +230,13 @@ def _method(claim: Claim, subject: Subject) -> str:
     best = min(near, key=lambda row: abs(claim.value / (row.hz or math.inf) - 1.0))
     method = best.method if best.method.startswith("all ") else f"the {best.method}"
     return f"no slip: it is {method}, {engineering(best.hz or 0.0, 'Hz')}, which is off by as much here"
+
+
+def _by_hand(claim: Claim, beside: Beside) -> str:
+    """Say that the figure is the one by hand: then the rules that hand analysis has are the reason and no slip."""
+    if not _close(claim, beside.hand, REPRODUCES):
+        return ""
+    return "no slip: it is the value by hand, which is off by as much here"
 
 
 def _elsewhere(claim: Claim, subject: Subject) -> str:

@@ -34,7 +34,8 @@ def empty_page(
 ) -> str:
     """Give the text of an empty page.
 
-    nodes: the signal nodes; those off the path and second halves are left out. figures: keys by device name.
+    nodes: the signal nodes; those off the path and second halves are left out, and the capacitance of one that has
+    none. figures: keys by device name.
     """
     told = [_HEAD.format(title=_line(title) or "this circuit", netlist=netlist, page=page, unit=gain_unit or "V/V")]
     for row in nodes:
@@ -43,8 +44,9 @@ def empty_page(
         half = f"; {row.image} alike, worked as a half circuit" if row.image else ""
         told.append(f"\n[node.{_key(row.name)}]          # {_line(row.title)}{half}\n")
         told.append('#resistance = ""      # ohm, to AC ground at mid-band\n')
-        told.append('#capacitance = ""     # F, with Miller\'s factors\n')
-        told.append('#time_constant = ""   # s\n')
+        if row.time_constant_s > 0.0 and row.time_constant_exact_s > 0.0:
+            told.append('#capacitance = ""     # F, with Miller\'s factors\n')
+            told.append('#time_constant = ""   # s\n')
         main = bridging(row)
         if main is not None:
             told.append(f'#miller_gain = ""     # far end of {_line(main[1].part)} over this node\n')

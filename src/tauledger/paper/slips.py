@@ -28,7 +28,8 @@ GM_FOR_G_M = "gm-for-G_m"
 INPUT_LEFT_OUT = "input-resistance-left-out"
 CONTROL_WORDS = ("base", "gate", "input")
 SERIES_AT_CONTROL = ("g_b", "r_b", "g_g")
-LOAD_CHARGES = ("c_sub", "c_cs", "c_js", "c_db", "c_bd")
+SUBSTRATE = ("c_sub",)
+DRAIN_BULK = ("c_db",)
 
 
 class Slip(Struct, frozen=True):
@@ -65,7 +66,8 @@ def slips(bands: Bands, circuit: EquivalentCircuit, *, temperature_c: float) -> 
         Slip("A-for-1-plus-A", "|A| taken for 1 + |A|", {}, _without_one),
         Slip("c_mu-not-multiplied", "C_μ not multiplied", {}, _not_multiplied),
         Slip("c_pi-not-bootstrapped", "C_π not bootstrapped", {}, _not_bootstrapped),
-        Slip("substrate-left-out", "C_cs left out", _each(_labelled(parts, LOAD_CHARGES), 0.0)),
+        Slip("substrate-left-out", "C_cs left out", _each(_labelled(parts, SUBSTRATE), 0.0)),
+        Slip("substrate-left-out", "C_db left out", _each(_labelled(parts, DRAIN_BULK), 0.0)),
         Slip("load-capacitance-left-out", "C_L left out", _each(_load_capacitance(bands), 0.0)),
     ]
     return tuple(slip for slip in found if slip.edit or slip.factor is not miller_factor)
