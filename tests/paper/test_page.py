@@ -58,6 +58,11 @@ def test_dotted_keys_and_inline_tables_are_tables_too() -> None:
         ("[node.b]\nresistance = inf\n", 2, 1, "resistance is not a number"),
         ("gain = 0\n", 1, 1, "gain must be other than 0"),
         ('f_high = "2M"\n', 1, 1, "M is milli in SPICE"),
+        ('f_high = "2 MHz"\n', 1, 1, "M is milli in SPICE"),
+        ('[node.b]\ncapacitance = "33e-12 F"\n', 2, 1, "F is femto in SPICE"),
+        ('f_high = "60 dB"\n', 1, 1, "only a gain is in dB"),
+        ('gain = "1e9 dB"\n', 1, 1, "gain is not a number"),
+        ('gain = "6 1 5"\n', 1, 1, "gain is not a number"),
         ("node = 3\n", 1, 1, "node is a table of tables"),
         ("[node]\nb = 3\n", 1, 2, "node is a table of tables"),
         ('[node.b]\nresistance = "1k"\n[node.b]\n', 3, 8, "this is no TOML"),
@@ -76,3 +81,28 @@ def test_what_cannot_be_used_is_one_message_with_its_place(text: str, line: int,
 def test_a_page_without_a_figure_says_how_to_write_one() -> None:
     with pytest.raises(InputError, match="there is no figure on this page"):
         read_page("# nothing\n[node.b]\n", "page.toml")
+
+
+@pytest.mark.parametrize(
+    ("line", "value"),
+    [
+        ('gain = "61.5dB"', 1188.5),
+        ('gain = "61.5 dB"', 1188.5),
+        ('gain = "-20 db"', 0.1),
+        ('gain = "0 dB"', 1.0),
+        ('gain = "61.5"', 61.5),
+        ('gain = "-95.8 V/V"', -95.8),
+        ('f_high = "271 kHz"', 271e3),
+        ('f_low = "1.4 k"', 1.4e3),
+        ('node.b.resistance = "1 kohm"', 1e3),
+        ('node.b.resistance = "1.373 kΩ"', 1373.0),
+        ('node.b.capacitance = "217 pF"', 217e-12),
+        ('node.b.miller_gain = "20 dB"', 10.0),
+        ('device.M1.gm_over_i = "18.2 1/V"', 18.2),
+        ('device.M1.gm_over_i = "18.2/V"', 18.2),
+        ('device.M1.v_gs = "-0.7 V"', -0.7),
+    ],
+)
+def test_units_stand_behind_a_blank_or_none(line: str, value: float) -> None:
+    (claim,) = read_page(line + "\n", "p").claims
+    assert claim.value == near(value, rel=1e-4)

@@ -6,6 +6,7 @@ The figures are written down by the formula that the slip gives, never taken fro
 from __future__ import annotations
 
 import math
+from pathlib import Path
 
 import pytest
 from msgspec.structs import replace
@@ -15,9 +16,10 @@ from cells import bands_of, bipolar, near
 from tauledger.circuit import Port
 from tauledger.devices.family import Device
 from tauledger.devices.parts import Part, capacitance, resistance, voltage_source
+from tauledger.engine.client import Engine
 from tauledger.network.assemble import Network
 from tauledger.paper.page import read_page
-from tauledger.pipeline import review_network
+from tauledger.pipeline import review, review_network
 from tauledger.record import PaperFigure
 
 GM, BETA, R_O, R_B = 0.043, 220.0, 78e3, 120.0
@@ -104,10 +106,31 @@ def degenerated_source() -> Network:
     )
 
 
+RC1, R_B2, RPI2 = 2.2e3, 10.0, 3.4e3
+
+
+def two_stages() -> Circuit:
+    """A common-emitter stage whose collector is the base of the next, of which r_π 3.4k loads 2.2k."""
+    first = bipolar("Q1", ("c1", "b", "0"), gm=GM, beta=BETA, r_o=R_O)
+    second = bipolar("Q2", ("out", "c1", "0"), gm=0.05, beta=0.05 * RPI2, r_o=40e3, r_b=R_B2, c_pi=C_PI, c_mu=C_MU)
+    return circuit(
+        resistance("RS", "s", "b", RS),
+        first,
+        resistance("RC1", "c1", "0", RC1),
+        second,
+        resistance("RC", "out", "0", RC),
+        capacitance("CL", "out", "0", C_L),
+    )
+
+
 R_SOURCE = parallel(RS, RB1, RB2)
 R_OUT = parallel(RC, RL, R_O)
 A = GM * R_OUT
 C_IN = C_PI + C_MU * (1.0 + A)
+R_LOAD = parallel(RC, RL)
+DIVIDED = R_PI / (R_PI + R_B + R_SOURCE) * parallel(RB1, RB2) / (parallel(RB1, RB2) + RS)
+LOADED = parallel(RC1, R_O, R_B2 + RPI2)
+TWO_GAINS = R_PI / (R_PI + RS) * GM * LOADED * RPI2 / (R_B2 + RPI2) * 0.05 * parallel(RC, 40e3)
 
 CASES = [
     ("r_o-forgotten", common_emitter(), "[node.out]\nresistance = ", parallel(RC, RL)),
@@ -131,6 +154,19 @@ CASES = [
         "[node.b]\nresistance = ",
         parallel(R_B, R_SOURCE, R_PI),
     ),
+    ("input-resistance-left-out", two_stages(), "[node.c1]\nresistance = ", parallel(RC1, R_O)),
+    ("input-resistance-left-out", two_stages(), "gain = ", TWO_GAINS * parallel(RC1, R_O) / LOADED),
+    ("overall-gain", common_emitter(), "[node.b]\ncapacitance = ", C_PI + C_MU * (1 + A * DIVIDED)),
+    ("gm-for-G_m", common_emitter(RE), "[node.b]\ncapacitance = ", C_PI + C_MU * (1 + A)),
+    ("gm-for-G_m", common_emitter(RE), "[node.b]\ncapacitance = ", C_PI / (1 + GM * RE) + C_MU * (1 + GM * R_LOAD)),
+    (
+        "A-for-1-plus-A",
+        common_emitter(2e3),
+        "[node.b]\ncapacitance = ",
+        C_PI / (1 + GM * 2e3) + C_MU * GM * R_LOAD / (1 + GM * 2e3),
+    ),
+    ("parallel-for-series", common_emitter(), "[node.b]\nresistance = ", R_B + RS + parallel(RB1, RB2) + R_PI),
+    ("parallel-for-series", common_emitter(), "[node.out]\nresistance = ", parallel(RC + RL, R_O)),
     # 738 kHz in older editions: R_s ‖ R1 ‖ R2 ‖ R_i with R1 ‖ R2 in R_i already
     ("bias-twice", published(two_source_pairs()), "f_high = ", 738.24e3),
     # gm·R_D in place of G_m·R_D and C_gs not bootstrapped: 34.6 MHz where the stage has 77.3
@@ -225,6 +261,78 @@ def test_a_page_that_is_right_names_none(page: str) -> None:
     found = told(common_emitter(), f"{page}{RIGHT[page]!r}\n")
     assert (found.slip, found.slip_gives, found.says) == ("", None, "agrees within 2 %")
     assert found.off == pytest.approx(0.0, abs=0.01)
+
+
+def behind_r_b() -> Circuit:
+    """C_μ in two parts: one inside r_b, one outside (C_bx), as the engine has it."""
+    q = bipolar("Q1", ("out", "b", "0"), gm=GM, beta=BETA, r_o=R_O, r_b=R_B, c_pi=C_PI, c_mu=C_MU)
+    return circuit(
+        resistance("RS", "s", "b", RS), q, resistance("RC", "out", "0", RC), capacitance("CBX", "b", "out", C_MU)
+    )
+
+
+def test_the_plain_sum_of_the_parts_is_a_right_capacitance() -> None:
+    """At the outer base R is R_S ‖ (r_b + r_π), inside it (R_S + r_b) ‖ r_π, 14 % more; K is the smaller inside."""
+    gain = GM * parallel(RC, R_O)
+    plain = C_PI + C_MU * (1 + gain) + C_MU * (1 + gain * R_PI / (R_PI + R_B))
+    found = told(behind_r_b(), f"[node.b]\ncapacitance = {plain!r}\n")
+    assert (found.slip, found.slip_gives) == ("", None)
+    assert found.says.startswith("no slip: it is the plain sum of the parts")
+    assert found.off is not None
+    assert found.off > 0.03
+    assert found.exact is not None
+    assert told(behind_r_b(), f"[node.b]\ncapacitance = {found.exact!r}\n").says == "agrees within 2 %"
+    assert not told(behind_r_b(), f"[node.b]\ncapacitance = {1.04 * plain!r}\n").says.startswith("no slip")
+
+
+def test_the_miller_gain_of_a_degenerated_base_is_that_to_the_collector() -> None:
+    found = told(common_emitter(RE), f"[node.b]\nmiller_gain = {-GM * R_LOAD / (1 + GM * RE)!r}\n")
+    assert "across Q1.c_mu" in found.title
+    assert found.says == "agrees within 2 %"
+    other = told(common_emitter(RE), f"[node.b]\nmiller_gain = {1 - 1 / (1 + GM * RE)!r}\n")
+    assert other.says.startswith("no slip: it is the gain across Q1.c_pi")
+
+
+def board(tmp_path: Path, name: str, edit: tuple[str, str] = ("", "")) -> Path:
+    text = (Path(__file__).parents[2] / "fixtures" / name).read_text(encoding="utf-8")
+    path = tmp_path / name
+    path.write_text(text.replace(*edit) if edit[0] else text, encoding="utf-8")
+    return path
+
+
+def test_no_resistance_inside_a_device_is_taken_in_series(tmp_path: Path, engine: Engine) -> None:
+    """RC ‖ r_o without the load is 3.714k; R_L + r_c in series is no way to it. R3 + RL without r_o's 77k is 11.8k."""
+    path = board(tmp_path, "echo_preamp.cir")
+    page = "[node.out]\nresistance = {}\n[node.b]\nresistance = {}\n"
+    first, all_ = review(path, engine=engine, page=read_page(page.format('"3.712k"', '"15.2k"'), "p")).paper
+    second, one = review(path, engine=engine, page=read_page(page.format('"11.78k"', '"3.38k"'), "p")).paper
+    assert (first.slip, second.slip) == ("load-forgotten", "parallel-for-series")
+    assert (all_.slip, one.slip) == ("parallel-for-series", "parallel-for-series")
+    assert "r_c" not in first.says + second.says
+    assert one.says.startswith("RS and (R2 ‖ R1) in series")
+
+
+def test_all_nodes_together_are_no_single_method(tmp_path: Path, engine: Engine) -> None:
+    path = board(tmp_path, "gain_pair.cir")
+    (found,) = review(path, engine=engine, page=read_page('f_high = "319.9k"\n', "p")).paper
+    assert found.says.startswith("no slip: it is all nodes together, ")
+
+
+def test_26_mv_is_named_in_the_cold_where_v_t_is_20_mv(tmp_path: Path, engine: Engine) -> None:
+    path = board(tmp_path, "echo_preamp.cir", (".end\n", ".temp -40\n.end\n"))
+    (device,) = review(path, engine=engine).devices
+    ampere = next(figure.value for figure in device.figures if figure.symbol == "i_c")
+    (found,) = review(path, engine=engine, page=read_page(f"[device.Q1]\ngm = {ampere / 26e-3!r}\n", "p")).paper
+    assert found.slip == "thermal-voltage-26"
+
+
+def test_a_substrate_capacitance_left_out_of_the_netlists_transistor(tmp_path: Path, engine: Engine) -> None:
+    """8 pF at the collector beside 34.7: 33 pF of load and C_μ + C_bx, 1.71 pF, times 1.01."""
+    path = board(tmp_path, "echo_preamp.cir", ("cjs=0", "cjs=8p"))
+    page = '[node.out]\ncapacitance = "{}"\n'
+    (found,) = review(path, engine=engine, page=read_page(page.format("34.72p"), "p")).paper
+    (near_miss,) = review(path, engine=engine, page=read_page(page.format("36.5p"), "p")).paper
+    assert (found.slip, near_miss.slip) == ("substrate-left-out", "")
 
 
 def test_a_figure_that_nothing_gives_is_said_to_be_unexplained() -> None:

@@ -28,7 +28,7 @@ UNITS = {"resistance": "Ω", "capacitance": "F", "time_constant": "s", "miller_g
 WORDS = {"resistance": "R", "capacitance": "C", "time_constant": "R·C", "miller_gain": "K"}
 TWO_PI = 2.0 * math.pi
 
-_OWN = re.compile(r"[rg]_\w+\(.*\)")
+_OWN = re.compile(r"r_(?!π)\w+\(.*\)")
 
 
 class Subject(Struct, frozen=True):
@@ -369,8 +369,7 @@ def _series(claim: Claim, subject: Subject) -> list[Candidate]:
     if row is None or claim.key not in ("resistance", "time_constant") or subject.hand is None:
         return []
     circuit = _drawn(subject, row)
-    own = {resistor.name for resistor in circuit.resistors} - {part.name for part in subject.bands.network.parts}
-    own = {name for name in own if _OWN.fullmatch(name)}
+    own = {resistor.name for resistor in circuit.resistors if _OWN.fullmatch(resistor.name)}
     scale = 1.0 if claim.key == "resistance" else row.time_constant_s / row.resistance_hand_ohm
     wrong = series_slips(circuit, row.lines[0].at, own, bias_network(subject.bands, circuit))
     return [Candidate("parallel-for-series", says, ohm * scale) for says, ohm in wrong]
