@@ -261,7 +261,7 @@ def _does_paper_agree(review: Review) -> str:
     text = f"By hand, the slowest node alone gives {alone}"
     summed = next((e for e in review.estimates if e.edge == "f_high" and e.method == "sum of time constants"), None)
     if summed is not None and summed.hz is not None and summed.difference is not None:
-        text += f"; the sum of time constants gives {number(summed.hz, 'Hz')}, {move(summed.difference)}"
+        text += f"; the sum of the exact time constants gives {number(summed.hz, 'Hz')}, {move(summed.difference)}"
     best = next((e for e in review.estimates if e.edge == "f_high" and e.recommended), None)
     if best is not None and best.method != "sum of time constants" and best.difference is not None:
         text += f"; the method to use here, {method_title(best.method, best.edge)}, {move(best.difference)}"

@@ -32,7 +32,8 @@ TERMS = {
     ),
     "Slowest node alone": "the estimate that takes the largest time constant and forgets the others.",
     "Sum of time constants": (
-        "the estimate 1/(2π·Σ R·C). It takes every node and stays a little below the truth as long as the "
+        "the estimate 1/(2π·Σ R·C), here with the exact R·C of every part. It takes every node and "
+        "stays a little below the truth as long as the "
         "poles are real."
     ),
     "Coefficients b₁, b₂": (

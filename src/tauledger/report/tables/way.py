@@ -33,6 +33,7 @@ METHODS = {
     "all nodes together": "a pole of its own for each node",
     "highest capacitor alone": "capacitor with the highest edge alone",
     "all capacitors together": "a pole of its own for each capacitor",
+    "sum of time constants": "sum of the exact time constants",
 }
 
 
