@@ -10,6 +10,7 @@ from cells import bands_of, bipolar, board, circuit_of, near, trees
 from tauledger.devices.parts import Part, resistance, transconductance
 from tauledger.hand.equivalent import EquivalentCircuit, upper_circuit
 from tauledger.hand.estimate import LookingIn
+from tauledger.hand.folded import folded_in_r_pi
 from tauledger.hand.looking_in import looking_in, loop_resistance
 from tauledger.network.assemble import Network
 
@@ -144,7 +145,8 @@ def test_series_feedback_raises_the_resistance_and_has_a_negative_loop_gain() ->
     assert "raises" in worked.text
 
 
-def test_a_bootstrapped_base_is_worked_branch_by_branch() -> None:
+def test_a_resistor_across_base_and_emitter_counts_in_r_pi() -> None:
+    """r_π 3.75k ‖ 47k, then r_π + (β + 1)·R_E: with r_b = 100 ohm in between within 1 % at base and emitter."""
     circuit = circuit_of(
         resistance("RS", "b", "0", 200e3),
         resistance("RB", "b", "e", 47e3),
@@ -152,12 +154,55 @@ def test_a_bootstrapped_base_is_worked_branch_by_branch() -> None:
         resistance("RE", "e", "0", 2e3),
         output="e",
     )
+    for node in ("b", "Q1'b", "e"):
+        worked = into(circuit, node)
+        assert worked.source == "rule"
+        assert worked.ohm == near(circuit.z(node, node), rel=0.01)
+        assert "r_π of Q1 with RB across it: 3.75k ‖ 47k = 3.47k" in worked.text
+
+
+def test_without_r_b_a_resistor_across_base_and_emitter_in_r_pi_is_exact() -> None:
+    circuit = circuit_of(
+        resistance("RS", "b", "0", 200e3),
+        resistance("RB", "b", "e", 5e3),
+        bipolar("Q1", ("0", "b", "e")),
+        resistance("RE", "e", "0", 2e3),
+        output="e",
+    )
+    assert into(circuit, "b").ohm == near(circuit.z("b", "b"), rel=1e-6)
+
+
+def test_a_resistor_from_the_base_past_the_emitter_is_not_across_both() -> None:
+    circuit = circuit_of(
+        resistance("RB", "b", "x", 5e3),
+        bipolar("Q1", ("0", "b", "e"), r_b=100.0),
+        resistance("R1", "e", "x", 1e3),
+        resistance("R2", "x", "0", 1e3),
+        output="e",
+    )
+    assert folded_in_r_pi(circuit) == (circuit, ())
+
+
+def test_the_branch_form_joins_a_passive_chain_to_ground_and_divides_no_series_resistance() -> None:
+    """Bootstrapped from a tap of the emitter resistor: RB ends at the tap, across no transistor."""
+    circuit = circuit_of(
+        resistance("RS", "b", "0", 200e3),
+        resistance("RB", "b", "x", 20e3),
+        bipolar("Q1", ("0", "b", "e"), r_b=100.0),
+        resistance("R1", "e", "x", 1e3),
+        resistance("R2", "x", "0", 1e3),
+        resistance("RP", "b", "p", 50e3),
+        resistance("RQ", "p", "0", 30e3),
+        output="e",
+    )
     worked = into(circuit, "b")
     assert worked.source == "branch"
     assert worked.ohm == near(circuit.z("b", "b"), rel=0.01)
-    assert sum(1.0 / r.ohm for r in worked.resistances) == near(1.0 / worked.ohm, rel=0.01)
-    raised = next(r for r in worked.resistances if r.name.startswith("RB"))
-    assert raised.ohm > 20 * 47e3
+    named = {resistance.name: resistance.ohm for resistance in worked.resistances}
+    assert named["(RP + RQ)"] == near(80e3)
+    assert any(name.startswith("RB/") for name in named)
+    assert not any(name.startswith("r_b") for name in named)
+    assert into(circuit, "Q1'b").source != "branch"
 
 
 def test_a_bridge_of_resistors_fits_no_rule_and_says_so() -> None:

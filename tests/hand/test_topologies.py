@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 
 import pytest
+from msgspec.structs import replace
 
 from cells import bands_of, bipolar, board, near
 from tauledger.circuit import Port
@@ -40,6 +41,11 @@ def q(name: str, *nodes: str, gm: float = 0.04, r_b: float = 100.0) -> Device:
     """A bipolar transistor at collector, base, emitter."""
     c, b, e = nodes
     return bipolar(name, (c, b, e), gm=gm, r_b=r_b)
+
+
+def pnp(name: str, *nodes: str, gm: float = 0.04) -> Device:
+    """The same with the other polarity."""
+    return replace(q(name, *nodes, gm=gm), kind="pnp")
 
 
 def r(name: str, a: str, b: str, ohm: float) -> Part:
@@ -80,6 +86,17 @@ TOPOLOGIES: Mapping[str, Board] = {
     "active load": board(SOURCE, q("Q1", "out", "b", "0"), q("Q2", "out", "v", "0"), r("RV", "v", "0", 100), LOAD),
     "diode-connected load": board(SOURCE, q("Q1", "out", "b", "0"), q("Q2", "out", "out", "0", gm=0.01), LOAD),
     "class-B followers at rest": board(
+        SOURCE, q("Q1", "0", "b", "out", gm=0.02), pnp("Q2", "0", "b", "out", gm=0.02), r("RL", "out", "0", 100)
+    ),
+    "class-AB followers behind emitter resistors": board(
+        SOURCE,
+        q("Q1", "0", "b", "e1", gm=0.2),
+        pnp("Q2", "0", "b", "e2", gm=0.03),
+        r("RE1", "e1", "out", 4.7),
+        r("RE2", "e2", "out", 4.7),
+        r("RL", "out", "0", 500),
+    ),
+    "two npn followers in parallel": board(
         SOURCE, q("Q1", "0", "b", "out", gm=0.02), q("Q2", "0", "b", "out", gm=0.02), r("RL", "out", "0", 100)
     ),
     "bootstrapped bias": board(SOURCE, q("Q1", "0", "b", "out"), r("RB", "b", "out", 100e3), LOAD),
@@ -125,6 +142,8 @@ EXPECTED: Mapping[str, list[tuple[str, str, tuple[str, ...]]]] = {
     "active load": [("out", "common emitter", ("active load Q2",))],
     "diode-connected load": [("out", "common emitter", ("diode load Q2",))],
     "class-B followers at rest": [("out", FOLLOWER, ("push-pull with Q2",))],
+    "class-AB followers behind emitter resistors": [("e1", FOLLOWER, ("push-pull with Q2",)), ("out", "passive", ())],
+    "two npn followers in parallel": [("out", FOLLOWER, ())],
     "bootstrapped bias": [("out", FOLLOWER, ("feedback to b through RB",))],
     "shunt feedback": [("out", "common emitter", ("feedback to b through RF",))],
     "series feedback": [

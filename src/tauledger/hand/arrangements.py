@@ -43,9 +43,7 @@ def arrangement(
                 told.append(f"{'diode' if role == 'diode-connected' else 'mirror'} load {other.owner}")
             elif role == "without signal":
                 told.append(f"active load {other.owner}")
-        elif {FOLLOWER in role_of(circuit, one) for one in (cell, other)} == {True} and all(
-            node in (end, *beyond(circuit, end)) for end in (common, o_common)
-        ):
+        elif _pushes_and_pulls(circuit, cell, other) and node in _reached(circuit, common):
             told.append(f"push-pull with {other.owner}")
     return (*dict.fromkeys(told), *_feedback(circuit, cell, node, before, earlier))
 
@@ -94,9 +92,23 @@ def _feedback(
     return list(dict.fromkeys(told))
 
 
+def _pushes_and_pulls(circuit: EquivalentCircuit, cell: Cell, other: Cell) -> bool:
+    """Two followers of opposite polarity (npn and pnp, n- and p-channel) that lead to one live node."""
+    if {cell.kind[:1], other.kind[:1]} != {"n", "p"}:
+        return False
+    joint = _reached(circuit, outer(circuit, cell.common)) & _reached(circuit, outer(circuit, other.common))
+    return bool(joint - {GROUND}) and all(FOLLOWER in role_of(circuit, one) for one in (cell, other))
+
+
+def _reached(circuit: EquivalentCircuit, node: str) -> set[str]:
+    return {node, *beyond(circuit, node)}
+
+
 def _shares_tail(circuit: EquivalentCircuit, cell: Cell, other: Cell) -> bool:
     """Two cells of one kind on one live common node, directly or each through one resistor, driven at two nodes."""
-    if cell.words != other.words or outer(circuit, cell.control) == outer(circuit, other.control) != GROUND:
+    if (cell.words, cell.kind) != (other.words, other.kind) or outer(circuit, cell.control) == outer(
+        circuit, other.control
+    ) != GROUND:
         return False
     tails = [_tail(circuit, one) for one in (cell, other)]
     return tails[0] == tails[1] != GROUND

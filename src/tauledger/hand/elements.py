@@ -42,7 +42,8 @@ class Cell(Struct, frozen=True):
     """One transconductor between hand nodes: gm·v(control, common) flows from output to common.
 
     gm, g_mb in S; r_pi, r_o in ohm, infinite where there is none. body: node of the second control, or None.
-    words: what the trade calls control, common and output ("base", "emitter", "collector").
+    words: what the trade calls control, common and output ("base", "emitter", "collector"). kind: of its device, as
+    "npn"; empty for a lone source.
     """
 
     owner: str
@@ -55,6 +56,7 @@ class Cell(Struct, frozen=True):
     body: str | None = None
     g_mb: float = 0.0
     words: tuple[str, str, str] = LONE_WORDS
+    kind: str = ""
 
     @property
     def beta(self) -> float:
@@ -122,6 +124,7 @@ def read_cells(
                     _word(device, cell.common, COMMON_WORDS, "common"),
                     _word(device, cell.output, OUTPUT_WORDS, "output"),
                 ),
+                kind=device.kind,
             )
         )
         used.update(part.name for part in device.parts if part.kind == "conductance" and part.label in INTERNAL)

@@ -1,8 +1,9 @@
 """The resistance that a node sees, as worked on paper, checked against the exact value and marked with its source.
 
-On a tree of cells the rules are exact. Elsewhere the result is accepted only within 1 % of the exact driving-point
-resistance; where it is not, a resistor that bridges a stage is taken by Miller, R_F/(1 − K), or one loop is taken out,
-R0/(1 + T), then the branch form with the exact node ratios is tried, and what is left is marked as solved.
+On a tree of cells the rules are exact, and a resistor across base and emitter may count in r_π. Elsewhere the result is
+accepted only within 1 % of the exact driving-point resistance; where it is not, a resistor that bridges a stage is
+taken by Miller, R_F/(1 − K), or one loop is taken out, R0/(1 + T), then the branch form with the exact node ratios is
+tried, and what is left is marked as solved.
 """
 
 from __future__ import annotations
@@ -14,10 +15,12 @@ import numpy as np
 from msgspec.structs import replace
 
 from tauledger.circuit import GROUND
-from tauledger.hand.branches import Branch, Walk, bare, branches, carrying, close, total
+from tauledger.hand.arrangements import SERIES
+from tauledger.hand.branches import Branch, Walk, bare, branches, carrying, close, outside, total
 from tauledger.hand.equivalent import EquivalentCircuit
 from tauledger.hand.estimate import LookingIn, Resistance
 from tauledger.hand.figures import plain
+from tauledger.hand.folded import folded_in_r_pi
 from tauledger.hand.miller import hand_gain
 
 ACCEPTED = 0.01
@@ -37,6 +40,9 @@ def looking_in(circuit: EquivalentCircuit, node: str, label: str) -> LookingIn:
     spent = walk.left < 0
     if not spent and close(rule_ohm, exact, ACCEPTED):
         return LookingIn(rule_ohm, "looking in", _line(f"R({label})", found, rule_ohm), _resistances(found), "rule")
+    folded = None if spent else _in_r_pi(circuit, node, label, exact)
+    if folded is not None:
+        return folded
     bridged = None if spent else _by_miller(circuit, node, label, exact)
     if bridged is not None:
         return bridged
@@ -77,6 +83,19 @@ def loop_resistance(circuit: EquivalentCircuit, node: str, k: int) -> float:
     z, i = circuit.impedance, circuit.row[node]
     denominator = 1.0 - w @ z @ u
     return float(z[i, i] + (z[i] @ u) * (w @ z[:, i]) / denominator) if denominator else math.inf
+
+
+def _in_r_pi(circuit: EquivalentCircuit, node: str, label: str, exact: float) -> LookingIn | None:
+    """By the rules, with every resistor across base and emitter counted in r_π."""
+    smaller, told = folded_in_r_pi(circuit)
+    if not told:
+        return None
+    walk = Walk()
+    found = branches(smaller, node, frozenset(), walk)
+    if walk.left < 0 or not close(total(found), exact, ACCEPTED):
+        return None
+    text = "; ".join([_line(f"R({label})", found, total(found)), *told])
+    return LookingIn(total(found), "looking in", text, _resistances(found), "rule")
 
 
 def _by_miller(circuit: EquivalentCircuit, node: str, label: str, exact: float) -> LookingIn | None:
@@ -128,24 +147,66 @@ def _branch_form(
     """1/R = Σ (1 − K_m)/R_m over passive branches, each raised or lowered by the exact ratio of its far end."""
     if any(node in (circuit.cells[k].output, circuit.cells[k].common) for k in circuit.cells_at.get(node, ())):
         return None
-    links: list[Branch] = []
-    for k in circuit.resistors_at.get(node, ()):
-        resistor = circuit.resistors[k]
-        links.append(_link(circuit, node, resistor.name, resistor.other(node), resistor.ohm))
+    links = [_link(circuit, node, k) for k in circuit.resistors_at.get(node, ())]
     for k in circuit.cells_at.get(node, ()):
         cell = circuit.cells[k]
         if not math.isinf(cell.r_pi):
-            links.append(_link(circuit, node, f"r_π({cell.owner})", cell.common, cell.r_pi))
-    if not links or any(link.ohm <= 0.0 for link in links) or not close(total(links), exact, ACCEPTED):
+            links.append(_divided(circuit, node, f"r_π({cell.owner})", cell.common, cell.r_pi))
+    told = [link for link in links if link is not None]
+    if not told or len(told) < len(links) or any(link.ohm <= 0.0 for link in told):
         return None
-    text = _line(f"R({label})", links, exact) + "; each branch divided by 1 − K of its far end"
-    return LookingIn(exact, "branches with the solved ratios", text, _resistances(links), "branch", rule_ohm=rule_ohm)
+    if not close(total(told), exact, ACCEPTED):
+        return None
+    text = _line(f"R({label})", told, exact) + "; each branch divided by 1 − K of its far end"
+    return LookingIn(exact, "branches with the solved ratios", text, _resistances(told), "branch", rule_ohm=rule_ohm)
 
 
-def _link(circuit: EquivalentCircuit, node: str, name: str, far: str, ohm: float) -> Branch:
+def _link(circuit: EquivalentCircuit, node: str, k: int) -> Branch | None:
+    """Take the branch that begins with resistor k: to ground where all behind it is passive, else to its far end.
+
+    What is in series is joined first. None for a transistor's series resistance alone: paper knows no ratio across it.
+    """
+    resistor = circuit.resistors[k]
+    far = resistor.other(node)
+    if _passive(circuit, far, k, node):
+        beyond = outside(circuit, far, frozenset({("R", k)}), Walk())
+        if beyond.ohm == 0.0:
+            return Branch(resistor.name, resistor.ohm, resistor.name)
+        behind = bare(beyond.symbol) if beyond.terms == 1 else f"({beyond.symbol})"
+        return Branch(resistor.name, resistor.ohm + beyond.ohm, f"({resistor.name} + {behind})")
+    cells, resistors = circuit.cells_at.get(far, ()), circuit.resistors_at.get(far, ())
+    if len(cells) == 1 and len(resistors) == 1:
+        cell = circuit.cells[cells[0]]
+        if far == cell.control not in (cell.common, cell.output) and not math.isinf(cell.r_pi):
+            name = f"({resistor.name} + r_π({cell.owner}))"
+            return _divided(circuit, node, name, cell.common, resistor.ohm + cell.r_pi)
+    if not cells and len(resistors) == 2:
+        after = circuit.resistors[next(other for other in resistors if other != k)]
+        return _divided(circuit, node, f"({resistor.name} + {after.name})", after.other(far), resistor.ohm + after.ohm)
+    inside = SERIES.fullmatch(resistor.name)
+    if inside is not None and inside.group(1) in {cell.owner for cell in circuit.cells}:
+        return None
+    return _divided(circuit, node, resistor.name, far, resistor.ohm)
+
+
+def _divided(circuit: EquivalentCircuit, node: str, name: str, far: str, ohm: float) -> Branch:
     rest = 1.0 - circuit.gain(node, far)
     value = ohm / rest if rest else math.inf
     return Branch(name, value, name if rest == 1.0 else f"{name}/{plain(rest)}")
+
+
+def _passive(circuit: EquivalentCircuit, start: str, without: int, node: str) -> bool:
+    """Say whether resistors alone lie behind `start`, resistor `without` taken out, and none leads back to `node`."""
+    seen, ahead = {GROUND}, [start]
+    while ahead:
+        here = ahead.pop()
+        if here in seen:
+            continue
+        seen.add(here)
+        if here == node or circuit.cells_at.get(here):
+            return False
+        ahead += [circuit.resistors[k].other(here) for k in circuit.resistors_at.get(here, ()) if k != without]
+    return True
 
 
 def _line(head: str, found: Sequence[Branch], ohm: float) -> str:
