@@ -111,15 +111,23 @@ def devices(
     drive: str | None = None,
     output: str | None = None,
     change: Change = NO_CHANGE,
+    settings: Sequence[str] = (),
+    allow: Sequence[str | Path] = (),
 ) -> DevicesTable:
     """Give every transistor and diode of the netlist at `path` at its operating point; nothing is swept.
 
+    settings: "R3=4.7k", "nsmall.bf=100", "Q1.area=2": set beyond `change`. allow: folders beside the netlist's own from
+    which files may be included.
     A netlist that drives nothing or names no output will do, with a note that says what is not judged then.
     Raises NetlistError, InputError, EngineError (EngineMissing, EngineTimeout).
     """
     from tauledger.compose.devices import devices_table
 
-    netlist = read(path)
+    netlist = read(path, allow=allow)
+    if settings:
+        from tauledger.netlist.settings import change_of
+
+        change = joined(change, change_of(netlist, settings))
     try:
         circuit = elaborate(netlist, change, drive=drive, output=output)
     except NetlistError:
@@ -177,15 +185,17 @@ def page_for(
     drive: str | None = None,
     output: str | None = None,
     midband_hz: float | None = None,
+    allow: Sequence[str | Path] = (),
 ) -> str:
     """Give the text of an empty page for the netlist at `path`; `page` is the name that it will have.
 
+    allow: folders beside the netlist's own from which files may be included.
     Raises NetlistError, InputError, EngineError.
     """
     from tauledger.paper.compare import known_figures
     from tauledger.paper.empty import empty_page
 
-    netlist = read(path)
+    netlist = read(path, allow=allow)
     numbers = solve(netlist, NO_CHANGE, engine, drive=drive, output=output, midband_hz=midband_hz)
     explanation = explain(numbers)
     return empty_page(

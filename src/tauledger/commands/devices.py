@@ -16,10 +16,25 @@ from tauledger.errors import ExitCode, InputError
 @click.option("--input", "drive", metavar="SRC", help="Drive source SRC with 1, all others with 0.")
 @click.option("--output", metavar="V", help="Take the response at: out, 'v(a,b)' or 'i(vload)'.")
 @click.option("--json", "json_file", metavar="FILE", help="Write the table as JSON; '-': alone on standard output.")
+@click.option(
+    "--set",
+    "settings",
+    metavar="NAME=VALUE",
+    multiple=True,
+    help="Set a .param, an element, model.parameter, X1.parameter or Q1.area.",
+)
+@click.option("--allow-include", "allow", metavar="DIR", multiple=True, help="Include files from DIR too; repeatable.")
 @click.option("--timeout", metavar="S", type=float, default=60.0, show_default=True, help="Seconds ngspice may take.")
 @click.option("--library", metavar="PATH", help="Use this ngspice library.")
 def devices_command(
-    netlist: str, drive: str | None, output: str | None, json_file: str | None, timeout: float, library: str | None
+    netlist: str,
+    drive: str | None,
+    output: str | None,
+    json_file: str | None,
+    settings: tuple[str, ...],
+    allow: tuple[str, ...],
+    timeout: float,
+    library: str | None,
 ) -> ExitCode:
     """Show bias, region and small-signal values of every transistor and diode in NETLIST, in textbook symbols."""
     if netlist == "-":
@@ -33,7 +48,7 @@ def devices_command(
     with start_engine(library=library, timeout_s=timeout) as engine:
         from tauledger.pipeline import devices
 
-        found = devices(netlist, engine=engine, drive=drive, output=output)
+        found = devices(netlist, engine=engine, drive=drive, output=output, settings=settings, allow=allow)
 
     from tauledger.report.devices import render, to_json
 

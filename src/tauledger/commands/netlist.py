@@ -18,10 +18,23 @@ from tauledger.errors import ExitCode, InputError
     "--origin", metavar="NAME", help="Tell where an element, model or parameter stands and how its value came."
 )
 @click.option("--output", metavar="FILE", help="Write to FILE instead of standard output.")
+@click.option(
+    "--set",
+    "settings",
+    metavar="NAME=VALUE",
+    multiple=True,
+    help="Set a .param, an element, model.parameter, X1.parameter or Q1.area.",
+)
 @click.option("--allow-include", "allow", metavar="DIR", multiple=True, help="Include files from DIR too; repeatable.")
 @click.option("--verbose", is_flag=True, help="List what was read past.")
 def netlist_command(
-    netlist: str, tree: bool, origin: str | None, output: str | None, allow: tuple[str, ...], verbose: bool
+    netlist: str,
+    tree: bool,
+    origin: str | None,
+    output: str | None,
+    settings: tuple[str, ...],
+    allow: tuple[str, ...],
+    verbose: bool,
 ) -> ExitCode:
     """Write NETLIST as a flat SPICE deck that ngspice reads to the same operating point and AC response.
 
@@ -36,9 +49,10 @@ def netlist_command(
 
     from tauledger.netlist import read
     from tauledger.netlist.elaborate import elaborated
+    from tauledger.netlist.settings import change_of
 
     found = read(netlist, allow=allow)
-    understood = elaborated(found, purpose="reading")
+    understood = elaborated(found, change_of(found, settings), purpose="reading")
     if tree:
         from tauledger.netlist.hierarchy import hierarchy
 

@@ -16,6 +16,7 @@ from tauledger.errors import ExitCode, InputError
 @click.option("--output", metavar="V", help="Take the response at: out, 'v(a,b)' or 'i(vload)'.")
 @click.option("--midband", metavar="HZ", help="Refer band edges to the gain at HZ, e.g. 10k.")
 @click.option("--to", "target", metavar="FILE", help="Write to FILE instead of standard output.")
+@click.option("--allow-include", "allow", metavar="DIR", multiple=True, help="Include files from DIR too; repeatable.")
 @click.option("--timeout", metavar="S", type=float, default=60.0, show_default=True, help="Seconds ngspice may take.")
 @click.option("--library", metavar="PATH", help="Use this ngspice library.")
 def paper_command(
@@ -24,6 +25,7 @@ def paper_command(
     output: str | None,
     midband: str | None,
     target: str | None,
+    allow: tuple[str, ...],
     timeout: float,
     library: str | None,
 ) -> ExitCode:
@@ -49,6 +51,7 @@ def paper_command(
             drive=drive,
             output=output,
             midband_hz=midband_hz,
+            allow=allow,
         )
     document = text.encode("utf-8")
     if file is None:

@@ -35,6 +35,7 @@ def add_run(netlist: Netlist, draft: Draft, around: Surroundings, number: int, r
     numbers = _node_numbers(netlist, draft, around, found)
     values = found.values
     if around.m != 1.0:
+        draft.divided.update((name, around.m) for k, name in zip(kind, names, strict=True) if k == "L")
         values = [v * around.m if k == "C" else v / around.m for k, v in zip(kind, values, strict=True)]
     draft.taken.update(fresh)
     draft.rows.append(

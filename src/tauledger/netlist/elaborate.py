@@ -11,7 +11,7 @@ from typing import Literal
 from msgspec import Struct
 from msgspec.structs import replace
 
-from tauledger.circuit import ADDED, GROUND, NO_CHANGE, Change, Circuit, Port, ReadingNote, fold
+from tauledger.circuit import ADDED, GROUND, NO_CHANGE, Change, Circuit, Element, Port, ReadingNote, fold
 from tauledger.errors import Diagnostic, InputError, NetlistError
 from tauledger.netlist.conditions import counts, define_all
 from tauledger.netlist.diagnostics import Site, gather, nearest, visible
@@ -29,13 +29,17 @@ from tauledger.netlist.ports import (
     driven_as_written,
     parse_port,
 )
-from tauledger.netlist.references import check_references
+from tauledger.netlist.references import check_references, coupling_notes
 from tauledger.netlist.scopes import Scope, work_out_all
 from tauledger.netlist.slips import first_place, forgotten_title, single_connections, strange_requests
 from tauledger.netlist.surroundings import Surroundings
 
 ABSOLUTE_ZERO_C = -273.15
 ROOM_C = 27.0
+
+# Models of these levels have nodes inside only behind a resistance of their own.
+SIMPLE_LEVELS = frozenset({1, 2, 3, 6, 9})
+INNER_RESISTANCES = ("rs", "rd", "rb", "rc", "re", "rsh", "rg")
 
 Purpose = Literal["review", "reading"]
 
@@ -130,6 +134,7 @@ def elaborated(
         nodesets=tuple(draft.nodesets.items()),
     )
     notes = [*netlist.notes, *([untitled] if untitled else []), *scope.notes, *sweep_notes(netlist)]
+    notes += coupling_notes(netlist, draft)
     notes += strange_requests(draft, circuit, looked_at)
     if chosen.how:
         node = draft.numbers[fold(chosen.port.plus)]
@@ -261,10 +266,41 @@ def _add_shunts(netlist: Netlist, draft: Draft, scope: Scope, settings: dict[str
             continue
         for number, node in enumerate(draft.nodes[1:], 1):
             draft.rows.append(Row(kind, f"{kind}shunt.{node}", number, 0, settings[option], ADDED, 0))
+        number, setting = _last_of(netlist, option)
+        site = Site(netlist.files, netlist.cards[number])
         says = f"{words} of {settings[option]:.6g} {unit} stands from every node to ground: {kind}shunt.<node>"
-        sites = (Site(netlist.files, netlist.cards[number]) for number in netlist.options)
-        where = next(site.where for site in sites if option in site.card.text.lower())
-        scope.notes.append(ReadingNote(where, says))
+        inside = [element.name for element in draft.elements if _has_inner_nodes(draft, element)]
+        if option == "rshunt" and inside:
+            says += (
+                "; ngspice puts one to every node inside a device as well, so that a node is loaded twice and more: "
+                f"{visible(inside[0])} has such nodes"
+            )
+            fault = site.fault(
+                setting,
+                f"rshunt loads the nodes inside {visible(inside[0])} too, which is not supported",
+                f"write resistors from the nodes that need them, e.g. Rs1 node 0 {settings[option]:.6g}",
+            )
+            draft.refusals.extend(fault.diagnostics)
+        scope.notes.append(ReadingNote(site.where, says))
+
+
+def _last_of(netlist: Netlist, option: str) -> tuple[int, Setting]:
+    """Find the card and the setting of an option that counts."""
+    found = [
+        (number, setting)
+        for number in netlist.options
+        for setting in option_settings(Site(netlist.files, netlist.cards[number]), netlist.items[number])
+        if fold(setting.name.text) == option
+    ]
+    return found[-1]
+
+
+def _has_inner_nodes(draft: Draft, element: Element) -> bool:
+    """Say whether a device may have nodes inside: its model has a resistance, or is none of the simple ones."""
+    model = draft.models.get(fold(element.model))
+    if model is None or element.letter not in "QDJMZ":
+        return False
+    return model.level not in SIMPLE_LEVELS or any(model.parameter(name, 0.0) for name in INNER_RESISTANCES)
 
 
 def _add_loads(draft: Draft, change: Change, currents: dict[str, Port]) -> None:

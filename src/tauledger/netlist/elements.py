@@ -123,6 +123,8 @@ def device(
             if name.startswith("area"):
                 positive(site, setting.value, value, name)
             parameters.append((name, value))
+    # One order for all ways to write it, so that what is written of it is read back the same.
+    parameters.sort(key=lambda parameter: parameter[0] not in FLAGS)
     return ElementCard(tuple(nodes(site, places[:where])), tuple(parameters), m, model)
 
 

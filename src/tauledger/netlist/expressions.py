@@ -131,7 +131,7 @@ def parse_formula(site: Site, text: str, at: int, inner: int) -> Formula:
         ) from error
     tree: Tree = parsed
     _check_signs(site, tree, text, inner)
-    return Formula(text, at, inner, tree)
+    return Formula(text, at, inner, _marked(tree, text) if text.count("?") > 1 else tree)
 
 
 def check_length(site: Site, text: str, at: int) -> None:
@@ -168,6 +168,37 @@ def _check_signs(site: Site, tree: Tree, text: str, inner: int) -> None:
         _check_signs(site, part, text, inner)
 
 
+def _marked(tree: Tree, text: str) -> Tree:
+    """Give "??" to each choice whose middle branch is another one without parentheses: ngspice reads it otherwise."""
+    if isinstance(tree, Call):
+        return Call(tree.function, tuple(_marked(part, text) for part in tree.arguments), tree.at)
+    if not isinstance(tree, Operation):
+        return tree
+    operator = tree.operator
+    if operator == "?" and _bare(tree.operands[1], text):
+        operator = "??"
+    return Operation(operator, tuple(_marked(part, text) for part in tree.operands), tree.at)
+
+
+def _bare(branch: Tree, text: str) -> bool:
+    """Say whether the middle branch of a choice is a choice that no parentheses enclose."""
+    if not (isinstance(branch, Operation) and branch.operator == "?"):
+        return False
+    depth = 0
+    for character in text[text.rfind("?", 0, _first(branch)) + 1 :]:
+        depth += (character == "(") - (character == ")")
+        if character in "?:" and depth == 0:
+            return character == "?"
+    return False
+
+
+def _first(tree: Tree) -> int:
+    """Give the offset at which a part of a formula begins, parentheses left out."""
+    if isinstance(tree, Operation):
+        return min(tree.at, *map(_first, tree.operands))
+    return tree.at
+
+
 class Surrounding(Struct, frozen=True):
     """What a formula needs of the place where it stands.
 
@@ -194,6 +225,8 @@ def evaluate(tree: Tree, here: Surrounding) -> float:
             return here.parameter(tree)
         case Operation(operator="?", operands=(condition, yes, no)):
             return evaluate(yes if evaluate(condition, here) else no, here)
+        case Operation(operator="??", operands=(condition, Operation(operands=(_, first, _)) as yes, no)):
+            return _inner_choice(yes, first, here) if evaluate(condition, here) else evaluate(no, here)
         case Operation(operator="negative", operands=(inner,)):
             return -evaluate(inner, here)
         case Operation(operator="positive", operands=(inner,)):
@@ -215,6 +248,17 @@ def evaluate(tree: Tree, here: Surrounding) -> float:
             function = _function(tree, name, len(arguments), here)
             return _finite(tree, function, values, here.fault)
     raise TypeError(tree)
+
+
+def _inner_choice(choice: Operation, first: Tree, here: Surrounding) -> float:
+    """Evaluate c ? x : y in a ? c ? x : y : z, for which ngspice takes x whatever c is."""
+    value = evaluate(choice, here)
+    if (theirs := evaluate(first, here)) != value:
+        here.remark(
+            f"a choice inside a choice without parentheses, a?c?x:y:z, is a?(c?x:y):z here and gives {value:.6g}; "
+            f"ngspice gives {theirs:.6g}, x whatever c is: write the parentheses"
+        )
+    return value
 
 
 def _function(tree: Call, name: str, count: int, here: Surrounding) -> Callable[..., float]:

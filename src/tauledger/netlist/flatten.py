@@ -33,15 +33,13 @@ from tauledger.netlist.models import ModelCard
 from tauledger.netlist.netlist import Definition, Netlist
 from tauledger.netlist.passive import impossible, passive
 from tauledger.netlist.runs import Run
+from tauledger.netlist.scale import grows, scaled, scaled_sizes
 from tauledger.netlist.scopes import Scope, number_of, work_out_all
 from tauledger.netlist.sources import source
 from tauledger.netlist.surroundings import Surroundings, existing_node, node_of
 
 # Letters whose elements ngspice does not multiply by the m of the instances around them.
 WITHOUT_M = frozenset("VEHBKTSWOUYP")
-# What `.options scale` multiplies.
-LENGTHS = ("l", "w", "pd", "ps", "sa", "sb", "sd")
-AREAS = ("ad", "as")
 # What ngspice takes for a resistor of 0 Ω.
 LEAST_OHM = 1e-3
 READ_ONLY = "`tauledger netlist` shows what was read"
@@ -62,7 +60,7 @@ def flatten(netlist: Netlist, draft: Draft, around: Surroundings, faults: list[D
                 _lines(netlist, draft, around, faults, number, entry)
         except NetlistError as error:
             faults.extend(error.diagnostics)
-        if len(faults) > 10 * MOST_DIAGNOSTICS:
+        if draft.full or len(faults) > 10 * MOST_DIAGNOSTICS:
             return
     for number in around.definition.nodesets:
         site = Site(netlist.files, netlist.cards[number], around.context)
@@ -83,6 +81,8 @@ def _lines(
             _element(netlist, draft, around, faults, number, site)
         except NetlistError as error:
             faults.extend(error.diagnostics)
+        if draft.full:
+            return
 
 
 def _start_from(netlist: Netlist, draft: Draft, around: Surroundings, items: tuple[Item, ...], site: Site) -> None:
@@ -108,6 +108,7 @@ def _element(
     if letter not in READ:
         raise _not_read(site, letter)
     if len(draft.taken) >= MOST_ELEMENTS:
+        draft.full = True
         raise site.fault(0, f"the circuit has more than {MOST_ELEMENTS} elements")
     items = netlist.items[number]
     card = fields(site, items)
@@ -128,13 +129,16 @@ def _element(
     else:
         seen = visible_models(netlist, around)
         part = _modelled(site, card, letter, seen.with_bins if letter == "M" else seen.names, around.scope)
-        part = _scaled(draft, _given(draft, name, part, letter), letter)
+        part = _given(draft, name, part, letter)
         if part.model is not None and fold(part.model.text) not in seen.models:
-            part = replace(part, model=picked_bin(netlist, draft, seen, part, part.model, letter, site))
+            drawn = replace(part, parameters=scaled_sizes(part.parameters, draft.scale))
+            part = replace(part, model=picked_bin(netlist, draft, seen, drawn, part.model, letter, site))
+        if draft.scale != 1.0 and part.model is not None:
+            part = _scaled(netlist, draft, around, part, part.model, letter, name, site)
     plain = letter in PASSIVES and part.model is None and [key for key, _ in part.parameters] == ["value"]
     if not plain:
         part = replace(part, parameters=_own_value(draft, name, part, letter))
-    part = _multiplied(around, part, letter, name, site)
+    part = _multiplied(draft, around, part, letter, name, site)
     if plain and [key for key, _ in part.parameters] == ["value"]:
         _plain(netlist, draft, around, part, letter, name, number, site)
         return
@@ -218,15 +222,31 @@ def settable(letter: str) -> frozenset[str]:
     return own - FLAGS if letter in WITHOUT_M else (own | {"m"}) - FLAGS
 
 
-def _scaled(draft: Draft, part: ElementCard, letter: str) -> ElementCard:
-    """Apply `.options scale` where ngspice does: to lengths and areas of MOS transistors and drawn capacitors."""
-    if draft.scale == 1.0 or letter not in "MC":
-        return part
-    by = {**dict.fromkeys(LENGTHS, draft.scale), **dict.fromkeys(AREAS, draft.scale**2)}
-    return replace(part, parameters=tuple((name, value * by.get(name, 1.0)) for name, value in part.parameters))
+def _scaled(
+    netlist: Netlist,
+    draft: Draft,
+    around: Surroundings,
+    part: ElementCard,
+    word: Word,
+    letter: str,
+    name: str,
+    site: Site,
+) -> ElementCard:
+    """Apply `.options scale` to the sizes of a device with a model."""
+    found = visible_models(netlist, around).models[fold(word.text)]
+    model = model_for(netlist, draft, found, word, letter).model
+    if grows(part.parameters, letter, model):
+        says = (
+            f"{name}: scale = {draft.scale:g} multiplies area and pj once, as in the first analysis of ngspice; "
+            "ngspice multiplies them again with every further analysis of a run"
+        )
+        around.scope.notes.append(ReadingNote(site.where, says))
+    return replace(part, parameters=scaled(part.parameters, letter, model, draft.scale))
 
 
-def _multiplied(around: Surroundings, part: ElementCard, letter: str, name: str, site: Site) -> ElementCard:
+def _multiplied(
+    draft: Draft, around: Surroundings, part: ElementCard, letter: str, name: str, site: Site
+) -> ElementCard:
     """Work in m: of the card and of the instances around, where ngspice counts it for this letter."""
     if letter in WITHOUT_M:
         if around.m != 1.0 and letter == "B" and part.quantity == "i":
@@ -234,6 +254,8 @@ def _multiplied(around: Surroundings, part: ElementCard, letter: str, name: str,
             around.scope.notes.append(ReadingNote(site.where, says))
         return part if part.m == 1.0 else replace(part, parameters=(*part.parameters, ("m", part.m)))
     m = _product(around, part.m, name, site)
+    if letter == "L" and m != 1.0:
+        draft.divided[fold(name)] = m
     if letter == "I":
         return replace(
             part,
@@ -387,6 +409,7 @@ def _instance(
         raise site.fault(call.subcircuit, message, f"{where}: .subckt {definition.name} {ports}")
     check_nesting(around, definition, call.subcircuit, site, where)
     if len(draft.instances) > MOST_INSTANCES:
+        draft.full = True
         raise site.fault(0, f"the circuit has more than {MOST_INSTANCES} instances of subcircuits")
     path = len(draft.instances)
     draft.instances.append(Instance(name, definition.name, number, definition.card, around.path))
@@ -431,6 +454,17 @@ def _instance_m(
     """Give the product of m for the body: m on X multiplies unless the subcircuit has a parameter of that name."""
     if "m" in own_names(netlist, definition):
         return around.m
+    product = _instance_product(draft, around, call, site, name)
+    if product != 1.0 and definition.definitions:
+        says = (
+            f"{name} counts m = {product:g} on everything in it; ngspice loses it on what stands outside of the "
+            f"subcircuits that {definition.name} defines inside itself"
+        )
+        around.scope.notes.append(ReadingNote(site.where, says))
+    return product
+
+
+def _instance_product(draft: Draft, around: Surroundings, call: InstanceCard, site: Site, name: str) -> float:
     changed = draft.changed_given.pop((fold(name), "m"), None)
     given = next((setting for setting in call.settings if fold(setting.name.text) == "m"), None)
     if changed is not None and not changed[2] > 0.0:

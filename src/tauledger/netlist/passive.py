@@ -37,7 +37,7 @@ OF_TEMPERATURE = frozenset({"temp", "dtemp"})
 def passive(site: Site, card: Fields, letter: str, models: frozenset[str], scope: Scope) -> ElementCard:
     """Read R, C or L. models: folded names of the models that can be seen from here.
 
-    A value comes out as parameter "value" with `scale` in it; a behavioural one as formula.
+    A value comes out as parameter "value" with `scale` in it, and so does "ac"; a behavioural one as formula.
     """
     word = PASSIVES[letter]
     parameters: dict[str, float] = {}
@@ -89,7 +89,10 @@ def passive(site: Site, card: Fields, letter: str, models: frozenset[str], scope
             hint = nearest(given.text, [*known_names(scope), *models], otherwise=f"write {SHAPE[letter]}")
             raise site.fault(given, message, hint)
         value = number_of(site, given, scope)
-        parameters = {"value": _checked(site, given, value * parameters.pop("scale", 1.0), letter), **parameters}
+        scale = parameters.pop("scale", 1.0)
+        if "ac" in parameters:
+            parameters["ac"] *= scale
+        parameters = {"value": _checked(site, given, value * scale, letter), **parameters}
     if model is None and not parameters.keys() & {"tc1", "tc2", "tce"}:
         parameters = {name: value for name, value in parameters.items() if name not in OF_TEMPERATURE}
     return ElementCard((plus, minus), tuple(parameters.items()), m, model)

@@ -221,8 +221,9 @@ def _decoded(data: bytes, shown: str) -> str:
         raise InputError(f"{shown} is not a text file", "a netlist is plain text")
     if not data.strip():
         raise InputError(f"{shown} is empty", "the first line is the title, then one card per line")
+    data = data.removeprefix(codecs.BOM_UTF8)
     try:
-        text = data.decode("utf-8-sig")
+        text = data.decode("utf-8")
     except UnicodeDecodeError:
         text = data.decode("latin-1")
     return text.removesuffix("\n").replace("\r\n", "\n").removesuffix("\r")

@@ -2,11 +2,12 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping
 
 from msgspec.structs import replace
 
-from tauledger.circuit import Apply, Current, Element, Formula, fold
+from tauledger.circuit import Apply, Current, Element, Formula, ReadingNote, fold
 from tauledger.errors import Diagnostic
 from tauledger.netlist.diagnostics import Site, nearest, visible
 from tauledger.netlist.draft import Draft, inductors
@@ -34,6 +35,23 @@ def check_references(netlist: Netlist, draft: Draft, faults: list[Diagnostic]) -
             _resolve(netlist, draft, element, name, measured, "element with a current", [], faults)
         if len(resolved) == len(element.references):
             draft.elements[k] = replace(element, references=tuple(resolved), formula=formula)
+
+
+def coupling_notes(netlist: Netlist, draft: Draft) -> list[ReadingNote]:
+    """Say of each coupling between inductors with m which coupling ngspice has: its M is of the inductors without m."""
+    notes = []
+    for element in draft.elements:
+        divided = math.prod(draft.divided.get(fold(name), 1.0) for name in element.references)
+        if element.letter != "K" or divided == 1.0:
+            continue
+        coupling = element.parameter("coupling", 0.0)
+        says = (
+            f"{element.name} couples {' and '.join(element.references)}, their m worked in, with {coupling:g}; ngspice "
+            f"takes the mutual inductance of both without m, a coupling of {coupling * math.sqrt(divided):.4g}"
+        )
+        site = Site(netlist.files, netlist.cards[element.card])
+        notes.append(ReadingNote(site.where, says))
+    return notes
 
 
 def _resolve(
