@@ -10,14 +10,13 @@ from msgspec import Struct
 
 from tauledger.circuit import fold
 from tauledger.devices.family import Device
-from tauledger.hand.equivalent import EquivalentCircuit, upper_circuit
+from tauledger.hand.equivalent import upper_circuit
 from tauledger.hand.estimate import HandEstimate, SignalNode
-from tauledger.hand.mirror import find_mirror, half_circuit
 from tauledger.network.bands import Bands
 from tauledger.paper.bench import Worked, bridging, work
 from tauledger.paper.keys import figures_by_key, symbol_of, unit_of
 from tauledger.paper.page import Claim, Page, is_signed, problem
-from tauledger.paper.series import series_slips
+from tauledger.paper.series import drawn, series_slips
 from tauledger.paper.slips import GM_FOR_G_M, INPUT_LEFT_OUT, OVERALL_GAIN, bias_network, slips, thermal_voltage
 from tauledger.quantity import engineering, percent
 from tauledger.record import PaperFigure
@@ -368,19 +367,11 @@ def _series(claim: Claim, subject: Subject) -> list[Candidate]:
     row = _row(claim, subject) if claim.kind == "node" else None
     if row is None or claim.key not in ("resistance", "time_constant") or subject.hand is None:
         return []
-    circuit = _drawn(subject, row)
+    circuit = drawn(subject.bands, subject.devices, second=row.second)
     own = {resistor.name for resistor in circuit.resistors if _OWN.fullmatch(resistor.name)}
     scale = 1.0 if claim.key == "resistance" else row.time_constant_s / row.resistance_hand_ohm
     wrong = series_slips(circuit, row.lines[0].at, own, bias_network(subject.bands, circuit))
     return [Candidate("parallel-for-series", says, ohm * scale) for says, ohm in wrong]
-
-
-def _drawn(subject: Subject, row: SignalNode) -> EquivalentCircuit:
-    circuit = upper_circuit(subject.bands, subject.devices)
-    mirror = find_mirror(circuit)
-    if mirror is None:
-        return circuit
-    return half_circuit(circuit, mirror.other if row.second else mirror)
 
 
 def _device_slips(claim: Claim, subject: Subject) -> list[Candidate]:

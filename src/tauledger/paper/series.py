@@ -7,10 +7,22 @@ from collections.abc import Collection
 from itertools import combinations
 
 from tauledger.circuit import GROUND
+from tauledger.devices.family import Device
 from tauledger.hand.branches import Branch, Walk, branches, total
-from tauledger.hand.equivalent import EquivalentCircuit
+from tauledger.hand.equivalent import EquivalentCircuit, upper_circuit
+from tauledger.hand.mirror import find_mirror, half_circuit
+from tauledger.network.bands import Bands
 
 Wrong = tuple[str, float]
+
+
+def drawn(bands: Bands, devices: tuple[Device, ...], *, second: bool) -> EquivalentCircuit:
+    """Give the circuit as it is drawn on paper: a balanced one as its half, the second one for a node of that."""
+    circuit = upper_circuit(bands, devices)
+    mirror = find_mirror(circuit)
+    if mirror is None:
+        return circuit
+    return half_circuit(circuit, mirror.other if second else mirror)
 
 
 def series_slips(circuit: EquivalentCircuit, node: str, own: Collection[str], bias: Collection[str]) -> list[Wrong]:
