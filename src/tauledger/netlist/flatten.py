@@ -458,7 +458,7 @@ def _instance_m(
     if product != 1.0 and definition.definitions:
         says = (
             f"{name} counts m = {product:g} on everything in it; ngspice loses it on what stands outside of the "
-            f"subcircuits that {definition.name} defines inside itself"
+            f"subcircuits that {definition.name} defines inside itself, and stops where those have no parameters"
         )
         around.scope.notes.append(ReadingNote(site.where, says))
     return product
