@@ -101,7 +101,7 @@ def test_the_reader_finds_the_answers_before_the_details(pages: dict[str, Page])
     head = next(parse(pages["usual"].raw).iter(f"{HTML}header"))
     told = words(head).replace("\u00a0", " ")
     for expected in (
-        "the upper edge is set at b, the base of Q1, mostly through Cμ of Q1",
+        "the upper edge is set at b, the base of Q1, above all through Cμ of Q1",
         "R 428.0 Ω by hand (428.0 Ω exact), C 442.8 pF, R·C 189.5 ns, which is 67 % of the sum over all nodes",
         "Cμ of Q1, 2.16 pF, which counts 180.1 times there",
         "By hand, the slowest node alone gives 839.8 kHz, +45 % against the simulation",

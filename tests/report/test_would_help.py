@@ -7,8 +7,9 @@ from msgspec.structs import replace
 from report.literal import ECHO_PREAMP
 from tauledger.record import Help, PoleFacts, Review
 from tauledger.report.document import Picture, document
-from tauledger.report.sentences import answers
+from tauledger.report.sentences import answers, headline
 from tauledger.report.tables.helps import what_would_help
+from tauledger.report.wording import part_titles
 
 LOAD = Help("CL", "CL", ("out", "0"), 50e-12, "F", True, False, 0.029, 0.0, 0.0, 598.2e3, 121.9, 0.0)
 COLLECTOR = Help("RC", "RC", ("vcc", "out"), 3.3e3, "Ω", False, True, 0.071, 0.001, -0.081)
@@ -51,3 +52,18 @@ def test_the_plane_is_drawn_where_it_shows_more_than_a_line() -> None:
     pair = PoleFacts(-2e5, 5e5, None, "", None, (), f0_hz=5.4e5, q=1.3)
     assert "plane" not in pictures(ECHO_PREAMP)
     assert "plane" in pictures(replace(ECHO_PREAMP, poles=(*ECHO_PREAMP.poles, pair)))
+
+
+def test_the_headline_names_the_part_with_the_largest_share_and_a_pair_where_one_makes_the_edge() -> None:
+    shared = sorted(
+        (part for part in ECHO_PREAMP.parts if part.share.f_high is not None),
+        key=lambda part: -(part.share.f_high or 0.0),
+    )
+    assert f"above all through {part_titles(ECHO_PREAMP.parts)[shared[0].name]}" in headline(ECHO_PREAMP)
+    high = ECHO_PREAMP.f_high
+    assert high is not None
+    assert high.exact_hz is not None
+    pair = PoleFacts(-0.1 * high.exact_hz, high.exact_hz, None, "", None, (), f0_hz=high.exact_hz, q=5.0)
+    told = headline(replace(ECHO_PREAMP, poles=(pair,)))
+    assert "a complex pair at" in told
+    assert "Q 5" in told

@@ -7,7 +7,7 @@ import re
 
 from msgspec import Struct
 
-from tauledger.record import CauseFacts, EdgeFacts, NodeRow, NoteFacts, PartRow, Review
+from tauledger.record import CauseFacts, EdgeFacts, NodeRow, NoteFacts, PartRow, PoleFacts, Review
 from tauledger.report.lower import in_parallel
 from tauledger.report.tables.helps import change, kind
 from tauledger.report.tables.setting import output_text
@@ -31,6 +31,8 @@ from tauledger.report.wording import (
 
 # Effects on an edge below one, and on the gain below the other, are no help and no cost.
 WORTH_TELLING, UNSEEN = 0.005, 5e-4
+# A part with less than a fifth of the edge does not own it.
+OWNS = 0.2
 _DECIBEL = {"V/V": "dB", "A/A": "dB", "ohm": "dBΩ", "Ω": "dBΩ", "S": "dBS"}
 _RAISED = str.maketrans("-0123456789", "⁻⁰¹²³⁴⁵⁶⁷⁸⁹")
 _INNER = re.compile(r"\b[cC]_(?:pi|mu)\b")
@@ -72,8 +74,13 @@ def headline(review: Review) -> str:
     node = limiting_node(review)
     if node is None:
         return f"{said}."
-    part = _largest_part(node, review)
-    through = f", mostly through {part}" if part else ""
+    pair = _pair_at_the_edge(review)
+    parts = _largest_shares(review)
+    if pair is not None:
+        owners = f" of {', '.join(parts)}" if parts else ""
+        quality = f", Q {pair.q:.2g}" if pair.q is not None else ""
+        return f"{said}; a complex pair at {number(pair.f0_hz, 'Hz', 3)}{quality}{owners} sets the upper edge."
+    through = f", above all through {parts[0]}" if parts else ""
     return f"{said}; the upper edge is set at {_at(node)}{through}."
 
 
@@ -147,8 +154,12 @@ def drive_sentence(review: Review) -> str:
 
 
 def limiting_node(review: Review) -> NodeRow | None:
-    """Give the node with the largest time constant of those that count."""
-    return next(iter(counting_nodes(review)), None)
+    """Give the counting node with the largest share of f_H; of equal ones the largest time constant.
+
+    The largest time constant alone does not say it: where poles pull each other, a node may even speed the edge up.
+    """
+    nodes = counting_nodes(review)
+    return max(nodes, key=lambda node: round(node.share.f_high or 0.0, 3), default=None)
 
 
 def cause_text(cause: CauseFacts, review: Review) -> str:
@@ -318,10 +329,22 @@ def _what_helps_most(review: Review, exact: float) -> str:
     return f"10 % less of one element raises f_H: {', '.join(told)}." if told else ""
 
 
-def _largest_part(node: NodeRow, review: Review) -> str:
-    terms = node.working.capacitances if node.working else ()
-    largest = max(terms, key=lambda term: term_seconds(term, node), default=None)
-    return part_titles(review.parts).get(largest.part, largest.part) if largest is not None else ""
+def _largest_shares(review: Review) -> list[str]:
+    """Name the parts with the largest shares of f_H, at most three, each with at least a fifth."""
+    shares = [(part.share.f_high, part.name) for part in review.parts if part.share.f_high is not None]
+    titles = part_titles(review.parts)
+    ordered = sorted(shares, key=lambda entry: -entry[0])[:3]
+    return [titles.get(name, name) for share, name in ordered if share >= OWNS or name == ordered[0][1]]
+
+
+def _pair_at_the_edge(review: Review) -> PoleFacts | None:
+    """Give the complex pair that makes f_H: the visible pole nearest to it, with a Q above ½."""
+    high = _hz(review.f_high)
+    if high is None:
+        return None
+    visible = [pole for pole in review.poles if not pole.cancelled and (pole.real_hz or pole.imag_hz)]
+    nearest = min(visible, key=lambda pole: abs(math.log(math.hypot(pole.real_hz, pole.imag_hz) / high)), default=None)
+    return nearest if nearest is not None and nearest.imag_hz and nearest.f0_hz else None
 
 
 def _at(node: NodeRow) -> str:
