@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
+import numpy as np
 import pytest
+from msgspec.structs import replace
 
 import boards
 from by_algebra import evidence
@@ -35,3 +37,19 @@ def test_coupling_and_bypass_that_do_not_see_each_other_do_not_interact() -> Non
 def test_sharper_causes_take_its_place() -> None:
     assert interaction_above(evidence(boards.source_follower_with_load())) is None
     assert interaction_above(evidence(boards.output_pole_first())) is None
+
+
+def test_beside_a_complex_pair_there_is_no_second_real_pole_to_name() -> None:
+    """The advice names b1 and b2 as the two poles for real ones alone."""
+    found = evidence(boards.two_common_source_stages())
+    assert found.upper.combined is not None
+    roots = found.upper.combined.roots
+    pair = np.array([roots.poles[0], (-1 + 2j) * 9e7, (-1 - 2j) * 9e7])
+    combined = replace(found.upper.combined, roots=replace(roots, poles=pair))
+    beside = interaction_above(replace(found, upper=replace(found.upper, combined=combined)))
+    real = interaction_above(found)
+    assert real is not None
+    assert beside is not None
+    assert "b1/b2 the second" in real.instead
+    assert "a pair at" in beside.says
+    assert beside.instead == "give no capacitor a pole of its own: b1 and b2 together give 206 kHz"

@@ -41,7 +41,6 @@ def _interaction(edge: EdgeEvidence) -> Cause | None:
     splits = combined.sigma < SPLITTING
     how = "load each other and push their poles apart" if splits else "act on each other"
     thing = "capacitances" if edge.edge == "f_high" else "coupling and bypass capacitors"
-    instead = f"give no capacitor a pole of its own: {_instead(edge, combined)}"
     becomes = ""
     if combined.exact_constants is not None and combined.two_coefficients is not None:
         becomes = f", {in_hertz(combined.exact_constants)} becomes {in_hertz(combined.two_coefficients)}"
@@ -51,7 +50,7 @@ def _interaction(edge: EdgeEvidence) -> Cause | None:
         effect=effect,
         where=f"poles at {first} and {second}",
         says=f"the {thing} {how} (σ = {combined.sigma:.2g}): the poles are at {first} and {second}{becomes}",
-        instead=instead,
+        instead=_instead(edge, combined),
         numbers=(
             NamedNumber("σ", combined.sigma, ""),
             NamedNumber("first pole", hertz(poles[0]), "Hz"),
@@ -67,6 +66,7 @@ def _instead(edge: EdgeEvidence, combined: Combined) -> str:
     poles = outward(edge)
     real = not poles[0].imag and not poles[1].imag
     if real and combined.coefficients.separation > SEPARATED and nearer(edge, combined.sum_of_constants, before):
-        return "1/b1 is the first, b1/b2 the second" if edge.edge == "f_high" else "a1 is the first, a2/a1 the second"
+        both_poles = ("1/b1", "b1/b2") if edge.edge == "f_high" else ("a1", "a2/a1")
+        return f"give no capacitor a pole of its own: {both_poles[0]} is the first, {both_poles[1]} the second"
     named = "b1 and b2" if edge.edge == "f_high" else "a1 and a2"
-    return f"{named} together give {in_hertz(both)}"
+    return f"give no capacitor a pole of its own: {named} together give {in_hertz(both)}"
