@@ -166,7 +166,7 @@ def test_a_solved_resistance_is_marked_and_the_mark_explained() -> None:
     working = replace(first.working or Working("", "", (), (), None, "solved"), source="solved")
     text = plain(replace(ECHO_PREAMP, nodes=(replace(first, working=working), *ECHO_PREAMP.nodes[1:])))
     assert "428.0 Ω†" in text
-    assert "† solved exactly: no hand rule fits this node" in text
+    assert "† solved exactly: none of the rules fits this node" in text
 
 
 def test_only_moves_above_half_a_per_cent_are_steps_and_the_rest_is_not_lost() -> None:
@@ -201,7 +201,7 @@ def test_parts_inside_a_device_are_named_as_the_trade_does_also_in_sentences() -
 def test_causes_beyond_the_third_are_counted_and_told_by_verbose() -> None:
     fourth = CauseFacts("no-dominant-pole", "f_L", 0.03, "", "no pole dominates", "take both", ())
     review = replace(ECHO_PREAMP, causes=(*ECHO_PREAMP.causes, *ECHO_PREAMP.causes[:1], fourth))
-    assert "3 largest of 4 causes" in plain(review)
+    assert "3 first of 4 causes" in plain(review)
     assert "No pole dominates. Take both." not in plain(review)
     assert "No pole dominates. Take both." in plain(review, verbose=True)
 

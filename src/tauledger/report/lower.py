@@ -43,7 +43,7 @@ def lower_edge(review: Review, *, verbose: bool = False) -> Section:
             remarks.append(f"{', '.join(named)} {verb}{'s' if len(named) == 1 else ''}{rest}")
     remarks += [f"10 % less of {group[0].name} alone" for group in rows if len(group) > 1]
     if any(group[0].resistance_hand_ohm is None for group in rows):
-        remarks.append(f"{SOLVED} exact: no hand rule fits")
+        remarks.append(f"{SOLVED} exact: none of the rules fits")
     if any(remarks):
         blocks.append(Prose("; ".join(filter(None, remarks)), lead="  "))
     return Section(tuple(blocks), major=True)

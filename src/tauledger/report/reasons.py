@@ -31,7 +31,7 @@ def causes(review: Review, *, verbose: bool = False) -> Section:
         return Section((Prose(withheld(review), style=CAUTION),))
     differ = [cause for cause in review.causes if not cause.on_paper]
     shown = differ if verbose else differ[:_CAUSES]
-    largest = f", {len(shown)} largest of {len(differ)} causes" if len(shown) < len(differ) else ""
+    largest = f", {len(shown)} first of {len(differ)} causes" if len(shown) < len(differ) else ""
     blocks: list[Block] = [Prose(f"WHY PAPER AND SIMULATION DIFFER{largest}", style=HEADING)]
     blocks.extend(_told(shown, review))
     if not differ:

@@ -51,7 +51,7 @@ def upper_budget(review: Review, *, verbose: bool = False) -> Section:
     head = (title, "R", "C", "R·C hand", "exact", f"+{number(probe, 'F', 1)}")
     blocks: list[Block] = [Table("lrrrrr", head, tuple(rows))]
     if any(_mark(node) == SOLVED for node in shown):
-        blocks.append(Prose("solved exactly: no hand rule fits this node", lead=f"  {SOLVED} "))
+        blocks.append(Prose("solved exactly: none of the rules fits this node", lead=f"  {SOLVED} "))
     if any(_mark(node) == LOOP for node in shown):
         blocks.append(Prose("R0/(1 + T) or branches by 1 − K, with T and K of the solved network", lead=f"  {LOOP} "))
     if review.budget.upper:

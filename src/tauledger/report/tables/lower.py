@@ -55,7 +55,7 @@ def lower_edge(review: Review) -> Grid:
         "change",
     )
     solved = any(part.resistance_hand_ohm is None for part in lower_parts(review))
-    notes = [f"{SOLVED} no hand rule fits: the exact resistance is used."] if solved else []
+    notes = [f"{SOLVED} none of the rules fits: the exact resistance is used."] if solved else []
     notes += [
         f"{' ‖ '.join(part.name for part in group)}: 10 % less of {group[0].name} alone."
         for group in groups

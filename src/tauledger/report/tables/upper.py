@@ -93,7 +93,7 @@ def _remarks(nodes: Iterable[NodeRow], review: Review, *, solved: bool) -> list[
             "different resistances, and C of the node is its R·C over that R. C adds up in each place, R·C all through."
         )
     if solved:
-        told.append(f"{SOLVED} solved exactly: no hand rule fits this node.")
+        told.append(f"{SOLVED} solved exactly: none of the rules fits this node.")
     least = _SEEN * abs(whole_s(review))
     for part in review.parts:
         seconds = part.time_constant_s or 0.0
