@@ -211,9 +211,8 @@ class Load(Struct, frozen=True):
 class Change(Struct, frozen=True):
     """How a circuit differs from its netlist: the one record behind every option and condition.
 
-    temperature_c: analysis temperature in °C, or None. parameters: global `.param` values. elements: values of
-    R, C, L
-    (or the dc value of V, I; the gain of G) by flat name. models: (model, parameter, value). loads: added parts.
+    temperature_c: analysis temperature in °C, or None. parameters: global `.param` values. elements: values of R, C,
+    L (or the dc value of V, I; the gain of G) by flat name. models: (model, parameter, value). loads: added parts.
     given: (instance or element, parameter, value), of a subcircuit's parameters and of what a device's own card gives
     (area, m). Names are compared folded.
     """
@@ -249,10 +248,9 @@ class Circuit(Struct, frozen=True):
     """The flat circuit for operating point and AC: what the engine is given and the network is rebuilt from.
 
     nodes: node names by number; nodes[0] is "0". drive: the sources that are driven, with complex amplitude.
-    temperature_c, tnom_c: analysis and nominal temperature in °C. options: (name, value) of those options that
-    change
-    the result (gmin). models: by flat name. instances: number 0 is the netlist itself. notes: how the netlist was read
-    where that needs saying. nodesets: (node number, volt) from which the search for the operating point starts.
+    temperature_c, tnom_c: analysis and nominal temperature in °C. options: (name, value) of those options that change
+    the result (gmin). models: by flat name. instances: number 0 is the netlist itself. notes: how the netlist was
+    read where that needs saying. nodesets: (node number, volt) from which the search for the operating point starts.
     """
 
     title: str

@@ -1,12 +1,10 @@
 """The Review record: the JSON document `tauledger.review/1`, field for field.
 
-Plain SI numbers; None where there is none; fixed order. `hand` is what an engineer would write on paper, `exact`
-is algebra on
-the rebuilt network, `simulated` is ngspice. `difference` is hz/simulated - 1 (against exact where nothing was
-simulated).
+Plain SI numbers; None where there is none; fixed order. `hand` is what an engineer would write on paper, `exact` is
+algebra on the rebuilt network, `simulated` is ngspice. `difference` is hz/simulated - 1 (against exact where nothing
+was simulated).
 `share`, `weight` and `effect` are fractions. Poles and zeros in Hz are s/2π. Frequencies of DC and of "no upper
-limit" in a plateau's
-extent are 0 and None. Renderers get this record and nothing else.
+limit" in a plateau's extent are 0 and None. Renderers get this record and nothing else.
 """
 
 from __future__ import annotations
@@ -235,9 +233,8 @@ class TenPercent(Struct, frozen=True):
 class PartRow(Struct, frozen=True):
     """One capacitance, inductance or transcapacitance (four nodes: output pair, control pair).
 
-    klass, "class" in JSON: short, open, gain, tuned. edge_hz: 1/(2πRC) of a coupling or bypass
-    capacitor;
-    zero_hz: the zero that it makes alone. time_constant_s = resistance_exact_ohm · value.
+    klass, "class" in JSON: short, open, gain, tuned. edge_hz: 1/(2πRC) of a coupling or bypass capacitor; zero_hz:
+    the zero that it makes alone. time_constant_s = resistance_exact_ohm · value.
     """
 
     name: str

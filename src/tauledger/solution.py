@@ -67,11 +67,10 @@ class EngineIdentity(Struct, frozen=True):
 class Bias(Struct, frozen=True):
     """The operating point.
 
-    voltages: of every node in the circuit's order, V (n_nodes,). currents: through each voltage source and
-    inductor, A,
-    by element name, positive into the first node. readings: per element, by reading name, SI units.
-    stepped: the engine needed gmin or source stepping. warnings: the engine's lines worth telling, with the
-    user's names. samples: of the instances that were measured alone, by element name.
+    voltages: of every node in the circuit's order, V (n_nodes,). currents: through each voltage source and inductor,
+    A, by element name, positive into the first node. readings: per element, by reading name, SI units.
+    stepped: the engine needed gmin or source stepping. warnings: the engine's lines worth telling, with the user's
+    names. samples: of the instances that were measured alone, by element name.
     """
 
     voltages: NDArray[np.float64]

@@ -1,8 +1,7 @@
 """The contract of a device family: what it is called, what to observe, and its small-signal parts.
 
 A family knows what ngspice calls a thing, not how to ask for it. It gives labelled parts, a hand model
-(`Transconductor`)
-and the figures of its operating point; nothing downstream knows which family a part came from.
+(`Transconductor`) and the figures of its operating point; nothing downstream knows which family a part came from.
 """
 
 from __future__ import annotations
@@ -92,15 +91,14 @@ class Family(Struct, frozen=True):
 
     letter: element letter. model_types: types of `.model` that belong to it, e.g. ("npn", "pnp"), empty without
     model.
-    levels: model levels it knows. terminals: words in card order, optional ones last. optional_terminals: how
-    many of those
-    may be missing. instance_parameters, model_parameters: names (folded) that ngspice accepts on the card and on
-    the model.
+    levels: model levels it knows. terminals: words in card order, optional ones last. optional_terminals: how many of
+    those may be missing. instance_parameters, model_parameters: names (folded) that ngspice accepts on the card and
+    on the model.
     observe: what to read from the engine, or None for nothing. linearise: element at its bias → parts and figures.
     refuse: a Refusal where this element or model cannot be rebuilt, else None. isolate: how the instance must be
     measured alone, once the readings are there, or None. model_optional: the element may stand without a model.
-    as_written: the parameters that the engine is given in the place of those on the card. flags: model parameters that
-    stand without a value.
+    as_written: the parameters that the engine is given in the place of those on the card. flags: model parameters
+    that stand without a value.
     """
 
     letter: str

@@ -1,17 +1,15 @@
 """Labelled primitives of the small-signal network: the one currency of everything downstream.
 
-Signs. Conductance, capacitance and inductance stand between nodes (a, b). A transconductance or transcapacitance
-has
+Signs. Conductance, capacitance and inductance stand between nodes (a, b). A transconductance or transcapacitance has
 nodes (out_plus, out_minus, control_plus, control_minus) and carries the current value·v(control) resp.
-value·dv(control)/dt
-from out_plus through itself to out_minus, like a SPICE G element. A delayed transconductance carries
-value·v(control) as it was `delay_s` before. A voltage gain (SPICE E) has the same four nodes and forces
-v(out_plus) - v(out_minus) = value·v(control). A current gain (F) and a transresistance (H) have two nodes and refer to
-the voltage source whose branch current i they sense: the first carries value·i, the second forces value·i. A mutual
-inductance has the nodes of two inductances, which it refers to; it adds value·di(second)/dt to the voltage of the
-first, so that a pair of them couples both ways. A block has any nodes and carries
-Σ_j G_ij·v_j + value·Σ_j C_ij·dv_j/dt into itself at its node i. A voltage source forces v(a) - v(b); its branch
-current flows from a through the source to b. A current source pushes its current from a through itself to b.
+value·dv(control)/dt from out_plus through itself to out_minus, like a SPICE G element. A delayed transconductance
+carries value·v(control) as it was `delay_s` before. A voltage gain (SPICE E) has the same four nodes and forces
+v(out_plus) - v(out_minus) = value·v(control). A current gain (F) and a transresistance (H) have two nodes and refer
+to the voltage source whose branch current i they sense: the first carries value·i, the second forces value·i. A
+mutual inductance has the nodes of two inductances, which it refers to; it adds value·di(second)/dt to the voltage of
+the first, so that a pair of them couples both ways. A block has any nodes and carries Σ_j G_ij·v_j + value·Σ_j
+C_ij·dv_j/dt into itself at its node i. A voltage source forces v(a) - v(b); its branch current flows from a through
+the source to b. A current source pushes its current from a through itself to b.
 """
 
 from __future__ import annotations

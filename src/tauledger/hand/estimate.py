@@ -76,8 +76,7 @@ class SignalNode(Struct, frozen=True):
     name: the netlist's node (unique; "(inside Q2)" appended where two rows would share one).
     title: "base of Q1 (b)". role: what the node is ("base", "collector", "output", …).
     members: all network nodes in it, inner ones included.
-    crossing: ρ = x·λ/(Z_nn·H), the relative gain lost if the node is shorted. moment: its signed
-    fraction of Σ|w·τ|.
+    crossing: ρ = x·λ/(Z_nn·H), the relative gain lost if the node is shorted. moment: its signed fraction of Σ|w·τ|.
     in_path: the row counts. lines: one per node that carries capacitance, the dominant one first.
     resistance_hand_ohm, resistance_exact_ohm: of the dominant node.
     time_constant_s (hand), time_constant_exact_s: sums over the lines.

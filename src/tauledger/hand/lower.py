@@ -37,9 +37,9 @@ ACCEPTED = 0.01
 def lower_rows(bands: Bands, devices: tuple[Device, ...]) -> tuple[LowerRow, ...]:
     """Give one row per short capacitor, parallel ones taken together, in the order of the file.
 
-    Hand: the resistance across it by looking-in rules, edge 1/(2π·R·C). zero_hz = f_k·H(open)/H(short) is the zero that
-    it makes alone. A row counts if the gain is at least 5 % lower with the capacitor open, or if its part of
-    Σ |f_k·(1 − H(open)/H(short))| is at least 2 %: supply decoupling, which the signal does not need, does not.
+    Hand: the resistance across it by looking-in rules, edge 1/(2π·R·C). zero_hz = f_k·H(open)/H(short) is the zero
+    that it makes alone. A row counts if the gain is at least 5 % lower with the capacitor open, or if its part of Σ
+    |f_k·(1 − H(open)/H(short))| is at least 2 %: supply decoupling, which the signal does not need, does not.
     Capacitors with both ends at one node make no row.
     Raises NetworkError where the mid-band circuit has no unique solution.
     """

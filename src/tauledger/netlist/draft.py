@@ -59,10 +59,10 @@ class Draft(Struct):
 
     numbers: node number by folded flat name. taken: by flat element name the number of its card. changed: values of a
     Change by folded name that have not been used yet; used ones are taken out. refusals: what can be read but not
-    reviewed. nodesets: volt by node number. scale: `.options scale`. scopes: of all
-    instances but the netlist itself. contexts: per instance the lines that say where it stands. pins: node number, path
-    and card of every node on an X card. full: a limit on the size of the circuit has been reached, nothing more is
-    read. divided: by folded flat name the m of each inductor that has one.
+    reviewed. nodesets: volt by node number. scale: `.options scale`. scopes: of all instances but the netlist itself.
+    contexts: per instance the lines that say where it stands. pins: node number, path and card of every node on an X
+    card. full: a limit on the size of the circuit has been reached, nothing more is read. divided: by folded flat
+    name the m of each inductor that has one.
     """
 
     nodes: list[str] = field(default_factory=lambda: [GROUND])

@@ -40,9 +40,9 @@ class Binding(Struct, frozen=True):
 class Scope(Struct):
     """The parameters of one instance. values fills as names are asked for; pending holds those being worked out.
 
-    fixed: values that a Change sets. functions: the user's own, by folded name. choices: the branch that
-    counts, by number of the `.if` block. notes, pending and calls (the functions
-    that are being worked out) are shared by all scopes of one elaboration.
+    fixed: values that a Change sets. functions: the user's own, by folded name. choices: the branch that counts, by
+    number of the `.if` block. notes, pending and calls (the functions that are being worked out) are shared by all
+    scopes of one elaboration.
     """
 
     outer: Scope | None = None

@@ -17,8 +17,8 @@ class Surroundings(Struct, frozen=True):
 
     prefix: "X1." before its own names. ports: node numbers by folded formal name. m: product of m of all instances
     around. caller: the instance that holds it. lexical: where its definition stands, for the models and definitions
-    that it can see. models: what has been read here already, by folded name. seen: the
-    models that can be seen from here, once they have been looked for.
+    that it can see. models: what has been read here already, by folded name. seen: the models that can be seen from
+    here, once they have been looked for.
     """
 
     definition: Definition

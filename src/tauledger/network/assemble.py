@@ -1,10 +1,9 @@
 """Parts → the matrices of the small-signal network, by modified nodal analysis.
 
 Y(s) = G + s·C acts on the unknowns x = (node voltages, branch currents); Y x = b is the forward problem with the
-drive b,
-Yᵀ λ = e the adjoint problem with the output e, and H = eᵀ x = λᵀ b.
-Branch unknowns belong to voltage sources (v_a - v_b = V), inductors (v_a - v_b - s·L·i - Σ s·M·i_k = 0), voltage gains
-(v_a - v_b - A·v(control) = 0) and transresistances (v_a - v_b - R·i_k = 0).
+drive b, Yᵀ λ = e the adjoint problem with the output e, and H = eᵀ x = λᵀ b.
+Branch unknowns belong to voltage sources (v_a - v_b = V), inductors (v_a - v_b - s·L·i - Σ s·M·i_k = 0), voltage
+gains (v_a - v_b - A·v(control) = 0) and transresistances (v_a - v_b - R·i_k = 0).
 G holds a delayed transconductance as it is at s = 0; `admittance` alone knows the delay.
 
 Source: Ho, Ruehli and Brennan, "The modified nodal approach to network analysis", IEEE Trans. Circuits Syst.

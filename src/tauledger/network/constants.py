@@ -103,9 +103,9 @@ class OpenConstants(Struct, frozen=True):
     sum_s: Σ τ over all parts. inverse_pole_sum_s: −Σ 1/p. weighted_sum_s: Σ w·τ. group_delay_s: −dφ/dω of H.
     Where capacitors set the gain, the first two are those of the poles above mid-band, at s = jω_mid, and the other
     two hold the poles below as well.
-    b1_s, b2_s2: coefficients of the denominator 1 + b1·s + b2·s² + …
-    node_time_constant_s: τ_i = Σ_k C_ik Z_ki by node of the upper network; branch_time_constant_s: those of the
-    inductors' branch currents by owner. All of them add to b1.
+    b1_s, b2_s2: coefficients of the denominator 1 + b1·s + b2·s² + … node_time_constant_s: τ_i = Σ_k C_ik Z_ki by
+    node of the upper network; branch_time_constant_s: those of the inductors' branch currents by owner. All of them
+    add to b1.
     """
 
     parts: tuple[OpenConstant, ...]

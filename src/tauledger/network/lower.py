@@ -1,7 +1,7 @@
 """Short-circuit time constants: what each coupling and bypass capacitor does to the lower band edge.
 
-R_k is the resistance across capacitor k while all other mid-band shorts are shorted and all opens open; then
-Σ 1/(R_k·C_k) = −Σ p of the lower network exactly (inductors that are open at mid-band: R/L), unless capacitors alone
+R_k is the resistance across capacitor k while all other mid-band shorts are shorted and all opens open; then Σ
+1/(R_k·C_k) = −Σ p of the lower network exactly (inductors that are open at mid-band: R/L), unless capacitors alone
 form a loop. Alone, capacitor k makes a pole at f_k = 1/(2πR_kC_k) and a zero at f_k·H(open)/H(short).
 
 Source: Gray, Hurst, Lewis and Meyer, "Analysis and Design of Analog Integrated Circuits", 5th ed., 2009, section

@@ -49,8 +49,8 @@ class Element(Struct, frozen=True):
 def drawable(review: Review) -> tuple[Stage, ...]:
     """Give the chain of nodes that can be drawn, at most 24 and the first with its gain from the source.
 
-    Passive nodes before the first stage are taken together. Empty for other networks: of two halves, or with
-    a stage whose gain by hand is not the exact one within 10 %.
+    Passive nodes before the first stage are taken together. Empty for other networks: of two halves, or with a stage
+    whose gain by hand is not the exact one within 10 %.
     """
     rows = {node.name: node for node in review.nodes}
     leading = 0
