@@ -88,12 +88,12 @@ def test_a_nested_include_is_looked_for_beside_its_file_then_beside_the_netlist(
 
 
 def test_files_are_included_only_from_the_own_folder_and_those_that_are_allowed(tmp_path: Path) -> None:
-    own, shared = tmp_path / "own", tmp_path / "shared"
+    own, shared = tmp_path / "own", tmp_path / "common"
     own.mkdir()
     shared.mkdir()
     (shared / "parts.inc").write_text(".include more.inc\n")
     (shared / "more.inc").write_text("R7 out 0 7k\n")
-    path = board(own, ".lib corners.lib typical", ".include ../shared/parts.inc")
+    path = board(own, ".lib corners.lib typical", ".include ../common/parts.inc")
     with pytest.raises(NetlistError, match="outside the netlist's own folder"):
         read(path)
     assert "R7" in elaborate(read(path, allow=[shared]), purpose="reading").passives.name
