@@ -274,3 +274,18 @@ def test_settings_give_the_headline_of_the_edited_netlist_beside_that_of_the_net
         )
         assert (moved[f"{name} by hand"].before, moved[f"{name} by hand"].after) == (before.hand_hz, after.hand_hz)
     assert (moved["gain"].before, moved["gain"].after) == (plain.midband.gain_db, by_hand.midband.gain_db)
+
+
+@pytest.mark.parametrize("board", BOARDS)
+def test_no_cause_is_told_of_an_edge_that_paper_meets(board: str, engine: Engine) -> None:
+    found = review(FIXTURES / board, engine=engine)
+    for quantity, edge in (("f_H", found.f_high), ("f_L", found.f_low)):
+        if edge is not None and edge.difference is not None and abs(edge.difference) < 0.0199:
+            assert not [cause for cause in found.causes if cause.quantity == quantity and not cause.on_paper]
+
+
+def test_the_hydrophone_s_lower_edge_is_one_that_paper_meets(engine: Engine) -> None:
+    edge = review(FIXTURES / "hydrophone.cir", engine=engine).f_low
+    assert edge is not None
+    assert edge.difference is not None
+    assert abs(edge.difference) < 0.01

@@ -9,7 +9,7 @@ from tauledger.causes.capacitors_left_out import other_capacitors_left_out
 from tauledger.causes.cause import Cause, Note
 from tauledger.causes.complex_poles import complex_poles_above, complex_poles_below
 from tauledger.causes.edges_interact import lower_edge_near_upper, upper_edge_near_lower
-from tauledger.causes.evidence import Evidence
+from tauledger.causes.evidence import EdgeEvidence, Evidence
 from tauledger.causes.feedback_ignored import loop_ignored, positive_gain_bridging
 from tauledger.causes.further_poles import further_poles_above, further_poles_below
 from tauledger.causes.gain_falls_first import gain_falls_first
@@ -76,11 +76,21 @@ def find_causes(evidence: Evidence) -> tuple[Cause, ...]:
     """Give the causes that move an edge by 2 % or more, the largest effect first.
 
     Those on the way from the dominant time constant alone to the exact edge come before those that say why another
-    method misses; what paper may leave out is last.
+    method misses; what paper may leave out is last. None is given of an edge that paper meets within 2 %: there is no
+    difference to explain, however the steps between cancel.
     """
     found = [cause for cause in (look(evidence) for look in CAUSES) if cause is not None]
-    worth = [cause for cause in found if abs(cause.effect) >= WORTH_TELLING]
+    met = {edge.quantity for edge in (evidence.upper, evidence.lower) if _met(edge)}
+    worth = [
+        cause for cause in found if abs(cause.effect) >= WORTH_TELLING and (cause.on_paper or cause.quantity not in met)
+    ]
     return tuple(sorted(worth, key=_rank))
+
+
+def _met(edge: EdgeEvidence) -> bool:
+    """Whether the classical estimate, the dominant time constant alone, lies within 2 % of the exact edge."""
+    by_hand = edge.combined.lowest if edge.combined is not None else None
+    return by_hand is not None and edge.hz is not None and abs(by_hand / edge.hz - 1.0) < WORTH_TELLING
 
 
 def _rank(cause: Cause) -> tuple[bool, bool, float]:
