@@ -17,6 +17,7 @@ from numpy.typing import NDArray
 from tauledger.hand.estimate import LowerRow, SignalNode
 from tauledger.hand.halves import counted
 from tauledger.network.poles import cancelled_pairs
+from tauledger.network.spectrum import ascending
 
 Complex = NDArray[np.complex128]
 Real = NDArray[np.float64]
@@ -186,7 +187,7 @@ def first_fall(poles: Complex, zeros: Complex, level: float = HALF_POWER) -> flo
         stop = max(stop, 10 * math.exp(asymptote))
     grid = np.geomspace(start, stop, 2 + int(POINTS_PER_DECADE * math.log10(stop / start)))
     # A sharp pair turns faster than the grid: its own frequencies are looked at as well.
-    grid = np.unique(np.concatenate([grid, magnitudes, np.abs(np.concatenate([poles, zeros]).imag)]))
+    grid = ascending(np.concatenate([grid, magnitudes, np.abs(np.concatenate([poles, zeros]).imag)]))
     grid = grid[(grid >= start) & (grid <= stop)]
     bracket = _first_bracket(grid, poles, zeros, level)
     # Each round narrows the bracket a hundredfold; the ratio of its ends starts at 1.04 at most.
