@@ -11,7 +11,6 @@ import math
 import re
 from collections.abc import Callable, Iterable, Mapping, Sequence
 from functools import cache
-from types import SimpleNamespace
 from typing import TYPE_CHECKING, Any
 
 from msgspec import Struct
@@ -21,7 +20,7 @@ from tauledger.circuit import fold
 from tauledger.errors import NetlistError
 from tauledger.netlist.diagnostics import Site, nearest
 from tauledger.netlist.expressions import advice, check_length
-from tauledger.netlist.formulas import Behaviour, Call, Name, Number, Operation, Probe, Tree
+from tauledger.netlist.formulas import Behaviour, Call, Name, Number, Operation, Probe, Tree, formula_parser, offset
 from tauledger.netlist.numbers import read_number
 from tauledger.netlist.scopes import Scope, check_call, find, find_function, known_functions, known_names
 
@@ -190,42 +189,15 @@ def _check_call(tree: Call, fault: Fault, own: Iterable[str]) -> None:
 
 @cache
 def _parser() -> Lark:
-    from lark import Lark
-
-    def at(token: Token) -> int:
-        return token.start_pos or 0
-
-    def number(children: Sequence[Token]) -> Number:
-        decimal = read_number(str(children[0]))
+    def number(text: str) -> float:
+        decimal = read_number(text)
         if decimal is None:
-            raise ValueError(children[0])
-        return Number(decimal.value, at(children[0]))
-
-    def name(children: Sequence[Token]) -> Name:
-        return Name(str(children[0]), at(children[0]))
+            raise ValueError(text)
+        return decimal.value
 
     def probe(children: Sequence[Token]) -> Probe:
         text = str(children[0])
         inside = text[text.index("(") + 1 : -1]
-        return Probe(text[0].lower(), tuple(inside.replace(",", " ").split()), at(children[0]))
+        return Probe(text[0].lower(), tuple(inside.replace(",", " ").split()), offset(children[0]))
 
-    def leading(children: Sequence[Any]) -> Operation:
-        return Operation("negative" if children[0] == "-" else "positive", (children[1],), at(children[0]))
-
-    def denial(children: Sequence[Any]) -> Operation:
-        return Operation("!", (children[1],), at(children[0]))
-
-    def binary(children: Sequence[Any]) -> Operation:
-        return Operation(str(children[1]), (children[0], children[2]), at(children[1]))
-
-    def choose(children: Sequence[Any]) -> Operation:
-        return Operation("?", tuple(children), children[0].at)
-
-    def call(children: Sequence[Any]) -> Call:
-        return Call(str(children[0]), tuple(children[1:]), at(children[0]))
-
-    rules = (number, name, probe, leading, denial, binary, choose, call)
-    build = SimpleNamespace(**{rule.__name__: rule for rule in rules})
-    return Lark.open_from_package(
-        "tauledger.grammar", "behaviour.lark", ("",), parser="lalr", lexer="contextual", transformer=build
-    )
+    return formula_parser("behaviour.lark", number, probe)

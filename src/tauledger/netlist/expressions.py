@@ -11,14 +11,13 @@ import math
 import operator
 from collections.abc import Callable, Sequence
 from functools import cache
-from types import SimpleNamespace
 from typing import TYPE_CHECKING, Any
 
 from msgspec import Struct
 
 from tauledger.errors import NetlistError
 from tauledger.netlist.diagnostics import Site, nearest
-from tauledger.netlist.formulas import Call, Formula, Name, Number, Operation, Probe, Tree
+from tauledger.netlist.formulas import Call, Formula, Name, Number, Operation, Probe, Tree, formula_parser, offset
 from tauledger.netlist.numbers import read_formula_number
 
 if TYPE_CHECKING:
@@ -304,37 +303,7 @@ def _impossible(
 
 @cache
 def _parser() -> Lark:
-    from lark import Lark
-
-    def at(token: Token) -> int:
-        return token.start_pos or 0
-
-    def number(children: Sequence[Token]) -> Number:
-        return Number(read_formula_number(str(children[0])), at(children[0]))
-
     def signed(children: Sequence[Token]) -> Number:
-        return Number(-read_formula_number(str(children[1])), at(children[0]))
+        return Number(-read_formula_number(str(children[1])), offset(children[0]))
 
-    def name(children: Sequence[Token]) -> Name:
-        return Name(str(children[0]), at(children[0]))
-
-    def leading(children: Sequence[Any]) -> Operation:
-        return Operation("negative" if children[0] == "-" else "positive", (children[1],), at(children[0]))
-
-    def denial(children: Sequence[Any]) -> Operation:
-        return Operation("!", (children[1],), at(children[0]))
-
-    def binary(children: Sequence[Any]) -> Operation:
-        return Operation(str(children[1]), (children[0], children[2]), at(children[1]))
-
-    def choose(children: Sequence[Any]) -> Operation:
-        return Operation("?", tuple(children), children[0].at)
-
-    def call(children: Sequence[Any]) -> Call:
-        return Call(str(children[0]), tuple(children[1:]), at(children[0]))
-
-    rules = (number, signed, name, leading, denial, binary, choose, call)
-    build = SimpleNamespace(**{rule.__name__: rule for rule in rules})
-    return Lark.open_from_package(
-        "tauledger.grammar", "expression.lark", ("",), parser="lalr", lexer="contextual", transformer=build
-    )
+    return formula_parser("expression.lark", read_formula_number, signed)

@@ -1,13 +1,19 @@
 """Formulas of both dialects as trees: what the text says, before any value is known.
 
-Numeric: {..}, '..', .param. Behavioural: B, E, G, and R C L given by a formula.
+Numeric: {..}, '..', .param. Behavioural: B, E, G, and R C L given by a formula. One builder makes both parsers; what is
+particular to a dialect comes from its own file.
 """
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator, Sequence
+from types import SimpleNamespace
+from typing import TYPE_CHECKING, Any
 
 from msgspec import Struct
+
+if TYPE_CHECKING:
+    from lark import Lark, Token
 
 
 class Number(Struct, frozen=True):
@@ -82,3 +88,44 @@ def names(tree: Tree) -> Iterator[str]:
                 yield from names(part)
         case Number() | Probe():
             return
+
+
+def formula_parser(grammar: str, number: Callable[[str], float], *rules: Callable[[Sequence[Token]], Any]) -> Lark:
+    """Build the parser of one dialect, which gives trees of the records above.
+
+    grammar: its file. number: how this dialect reads a number. rules: what it has beyond the other, each named as in
+    the grammar.
+    """
+    from lark import Lark
+
+    def read(children: Sequence[Token]) -> Number:
+        return Number(number(str(children[0])), offset(children[0]))
+
+    def name(children: Sequence[Token]) -> Name:
+        return Name(str(children[0]), offset(children[0]))
+
+    def leading(children: Sequence[Any]) -> Operation:
+        return Operation("negative" if children[0] == "-" else "positive", (children[1],), offset(children[0]))
+
+    def denial(children: Sequence[Any]) -> Operation:
+        return Operation("!", (children[1],), offset(children[0]))
+
+    def binary(children: Sequence[Any]) -> Operation:
+        return Operation(str(children[1]), (children[0], children[2]), offset(children[1]))
+
+    def choose(children: Sequence[Any]) -> Operation:
+        return Operation("?", tuple(children), children[0].at)
+
+    def call(children: Sequence[Any]) -> Call:
+        return Call(str(children[0]), tuple(children[1:]), offset(children[0]))
+
+    named = {rule.__name__: rule for rule in (name, leading, denial, binary, choose, call, *rules)}
+    build = SimpleNamespace(number=read, **named)
+    return Lark.open_from_package(
+        "tauledger.grammar", grammar, ("",), parser="lalr", lexer="contextual", transformer=build
+    )
+
+
+def offset(token: Token) -> int:
+    """Give where a token starts in its text."""
+    return token.start_pos or 0
