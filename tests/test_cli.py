@@ -18,6 +18,7 @@ from msgspec.structs import replace
 
 from report.literal import ECHO_PREAMP
 from tauledger import cli, pipeline
+from tauledger.asked import Asked
 from tauledger.engine import client
 from tauledger.errors import (
     Diagnostic,
@@ -90,12 +91,13 @@ def test_options_reach_the_review(run: Run, asked: dict[str, Any]) -> None:
     code, _, _ = run(
         *("review", "board.cir", "--input", "VS", "--output", "v(a,b)", "--midband", "2.2meg"),
         *("--timeout", "5", "--library", "/opt/libngspice.so"),
-        *("--set", "RL=2k", "--set", "nsmall.bf=100", "--allow-include", "../parts", "--fold", "XU1"),
+        *("--set", "RL=2k", "--set", "nsmall.bf=100", "--allow-include", "../parts", "--fold", "XU1", "--at", "10meg"),
     )
     assert code == ExitCode.OK
     assert asked == {
         "path": "board.cir",
         "fold": ("XU1",),
+        "asked": Asked(at_hz=(10e6,)),
         "drive": "VS",
         "output": "v(a,b)",
         "midband_hz": 2.2e6,

