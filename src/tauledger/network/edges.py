@@ -10,6 +10,7 @@ import numpy as np
 from msgspec import Struct
 from msgspec.structs import replace
 
+from tauledger.network.angle import Angle
 from tauledger.network.assemble import Network
 from tauledger.network.midband import MidBand, frequency_range
 from tauledger.network.solve import Complex, Real, log_slope, on_axis, response, solve
@@ -53,13 +54,15 @@ class Edge(Struct, frozen=True):
 class Edges(Struct, frozen=True):
     """Both band edges; one is None where the response does not leave mid-band on that side.
 
-    frequency_hz: (k,) the scan. response: (k,) complex H there.
+    frequency_hz: (k,) the scan. response: (k,) complex H there. angle: the phase beyond mid-band, continuous; None for
+    a constant response.
     """
 
     f_low: Edge | None
     f_high: Edge | None
     frequency_hz: Real
     response: Complex
+    angle: Angle | None = None
 
 
 class _Side(Struct, frozen=True):
@@ -83,41 +86,19 @@ def find_edges(network: Network, midband: MidBand) -> Edges:
     frequency = frequency_grid(*reach, POINTS_PER_DECADE, np.concatenate([poles, zeros]))
     h = response(network, frequency)
     above, below = _sides(midband, frequency, np.abs(h))
-    angle = _Angle(poles, zeros, midband)
+    angle = Angle(poles, zeros, midband)
     return Edges(
         f_low=None if midband.frequency_hz == 0.0 else _edge(network, midband, below, angle),
         f_high=_edge(network, midband, above, angle),
         frequency_hz=frequency,
         response=h,
+        angle=angle,
     )
 
 
 def at_same_frequency(network: Network, midband: MidBand) -> MidBand:
     """Give the reference at the same frequency in a changed network; its plateau's extent is carried over."""
     return replace(midband, gain=complex(response(network, np.array([midband.frequency_hz]))[0]))
-
-
-class _Angle(Struct, frozen=True):
-    """Phase by poles and zeros, continuous along the axis: it chooses the turn of the exact phase."""
-
-    poles: Complex
-    zeros: Complex
-    midband: MidBand
-
-    def beyond_midband(self, frequency_hz: float, h: complex) -> float:
-        """Give the phase of h at this frequency minus that at mid-band, in degrees, unwrapped."""
-        exact = float(np.angle(h / self.midband.gain, deg=True))
-        turning = self._sum(self.zeros, frequency_hz) - self._sum(self.poles, frequency_hz)
-        return exact + 360.0 * round((turning - exact) / 360.0)
-
-    def _sum(self, roots: Complex, frequency_hz: float) -> float:
-        ends = np.array([self.midband.frequency_hz, frequency_hz])
-        moving = roots[roots != 0.0]
-        # seen from a root, the axis point turns through the angle whose tangent is its height over its distance
-        height = 2.0 * np.pi * ends[:, None] - moving.imag
-        side = np.where(moving.real > 0.0, -1.0, 1.0)
-        turn = np.arctan2(height, np.abs(moving.real)) * side
-        return float(np.degrees(np.sum(turn[1] - turn[0])))
 
 
 def _sides(midband: MidBand, frequency: Real, magnitude: Real) -> tuple[_Side, _Side]:
@@ -131,7 +112,7 @@ def _sides(midband: MidBand, frequency: Real, magnitude: Real) -> tuple[_Side, _
     )
 
 
-def _edge(network: Network, midband: MidBand, side: _Side, angle: _Angle) -> Edge | None:
+def _edge(network: Network, midband: MidBand, side: _Side, angle: Angle) -> Edge | None:
     if len(side.gain) < 2 or np.all(np.abs(side.gain - 1.0) <= UNCHANGED):
         return None
     crossings = _crossings(network, midband, side, HALF_POWER)
