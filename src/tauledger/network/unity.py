@@ -16,7 +16,7 @@ from msgspec import Struct
 from tauledger.network.assemble import Network
 from tauledger.network.edges import LAST_STEP, Edges, crossing, find_edges
 from tauledger.network.midband import MidBand
-from tauledger.network.solve import Real, log_slope, on_axis, response, solve
+from tauledger.network.solve import Complex, Real, log_slope, on_axis, response, solve
 
 HALF_TURN_DEG = 180.0
 BEYOND = 2.0
@@ -58,8 +58,7 @@ def find_unity(network: Network, midband: MidBand, edges: Edges | None = None) -
     angle = edges.angle
     if angle is None:
         return None
-    frequency = _outwards(network, midband, edges)
-    h = response(network, frequency)
+    frequency, h = _outwards(network, midband, edges)
     over = np.abs(h) >= 1.0
     at = [
         crossing(network, 1.0, float(frequency[k]), float(frequency[k + 1]))
@@ -89,18 +88,23 @@ def is_ratio(network: Network) -> bool:
     return into == {f"{network.port.kind} source"}
 
 
-def _outwards(network: Network, midband: MidBand, edges: Edges) -> Real:
-    """Give the scan from mid-band upwards, (k,), carried on to where |H| has fallen below 1 if it falls at its end."""
-    above = edges.frequency_hz[edges.frequency_hz > midband.frequency_hz]
-    frequency = np.concatenate([[midband.frequency_hz or float(edges.frequency_hz[0]) / 10.0], above])
-    end = solve(network, on_axis(frequency[-1:]))
-    gain, slope = float(np.abs(end.response[0])), float(log_slope(network, end)[0].real)
-    if gain < 1.0 or slope > FALLS:
-        return np.asarray(frequency, dtype=np.float64)
+def _outwards(network: Network, midband: MidBand, edges: Edges) -> tuple[Real, Complex]:
+    """Give the scan from mid-band upwards, frequency (k,) and H (k,).
+
+    It is carried on to where |H| has fallen below 1 if it still falls at the end.
+    """
+    above = edges.frequency_hz > midband.frequency_hz
+    frequency = np.concatenate(
+        [[midband.frequency_hz or float(edges.frequency_hz[0]) / 10.0], edges.frequency_hz[above]]
+    )
+    h = np.concatenate([[midband.gain], edges.response[above]])
     last = float(frequency[-1])
+    gain, slope = abs(complex(h[-1])), float(log_slope(network, solve(network, on_axis(last)))[0].real)
+    if gain < 1.0 or slope > FALLS:
+        return frequency, h
     stop = BEYOND * last * gain ** (-1.0 / slope)
     more = np.geomspace(last, stop, int(np.ceil(np.log10(stop / last) * POINTS_PER_DECADE)) + 1)[1:]
-    return np.concatenate([frequency, more])
+    return np.concatenate([frequency, more]), np.concatenate([h, response(network, more)])
 
 
 def _half_turn(network: Network, midband: MidBand, frequency: Real, phase_deg: Real) -> float | None:
