@@ -1,12 +1,15 @@
 """The vertical power MOS transistor: channel, gate charge and series resistances by reading, and its body diode.
 
 The body diode stands between the outer drain and source, behind R_B on the side of the source. Its capacitance has a
-reading (`cds`), its conductance has none. Reverse biased it is gmin; what the saturation current adds to it is seen
-from 125 °C on (1e-8 of the response). Where it conducts, the instance is measured alone and fitted. The shunt R_DS
-counts in ngspice's operating point, and (measured) not in its AC analysis.
+reading (`cds`), its conductance has none: it follows from the model. Reverse biased ngspice takes, to the last digit of
+a measurement, gmin (whatever m is) plus the slope of I_S·(1 + 3·n·V_T/(e·v)), which counts where it is hot: I_S grows
+by 1e5 from 27 to 125 °C. Where the diode conducts or is near breakdown, the instance is measured alone and fitted. The
+shunt R_DS counts in ngspice's operating point, and (measured) not in its AC analysis.
 """
 
 from __future__ import annotations
+
+import math
 
 from msgspec.structs import replace
 
@@ -14,8 +17,14 @@ from tauledger.circuit import Circuit, Element, Model
 from tauledger.devices.family import Device, Family, Refusal, Terminal, inner_node, names, readings_of
 from tauledger.devices.field_effect import Ends, cell_of, channel, figures, kept, mos_region, series
 from tauledger.devices.fitted import field_effect, isolated
+from tauledger.devices.gummel_poon import ZERO_CELSIUS
 from tauledger.devices.parts import capacitance, conductance
-from tauledger.devices.temperature import polynomial_factor, temperature_rise
+from tauledger.devices.temperature import (
+    device_temperature,
+    nominal_temperature,
+    polynomial_factor,
+    temperature_rise,
+)
 from tauledger.solution import Bias, Isolation, Observation
 
 READINGS = (
@@ -23,8 +32,14 @@ READINGS = (
     *("rd", "rs", "drainconductance", "sourceconductance"),
 )
 GMIN = 1e-12
-# A body diode at this forward voltage carries less than gmin would at 1 V: 0.1 V are four times V_T.
+# k/q in V/K as ngspice has it (CODATA 2014): with the value of 2019 a hot diode differs by 3e-6.
+BOLTZMANN_OVER_CHARGE = 1.38064852e-23 / 1.6021766208e-19
+# Forward voltage that counts as conducting: four times V_T.
 FORWARD_VOLT = 0.1
+# The current of breakdown falls by e per n_BV·V_T below BV; this many of them below it nothing is left.
+BREAKDOWN_THERMAL_VOLTAGES = 40.0
+# More than this of its voltage falls across R_B: the junction's own is no longer that of the terminals.
+ACROSS_R_B = 1e-7
 # The node behind R_B has a blank in its name in older versions of ngspice.
 INNER = ("drain", "source", "gate", "body diode", "body_diode")
 
@@ -45,10 +60,42 @@ def is_p_channel(model: Model) -> bool:
 
 
 def diode_conducts(circuit: Circuit, element: Element, bias: Bias) -> bool:
-    """Say whether the body diode is so far forward that its conductance counts."""
-    sign = -1.0 if is_p_channel(circuit.model(element.model)) else 1.0
+    """Say whether the body diode carries so much, forward or by breakdown, that the instance is measured alone."""
+    model = circuit.model(element.model)
+    forward = _forward_volt(model, element, bias)
+    kelvin = device_temperature(circuit, element) + ZERO_CELSIUS
+    breakdown = dict(model.parameters).get("bv")
+    margin = BREAKDOWN_THERMAL_VOLTAGES * model.parameter("nbv", 1.0) * BOLTZMANN_OVER_CHARGE * kelvin
+    if forward > FORWARD_VOLT or (breakdown is not None and -forward > breakdown - margin):
+        return True
+    g_body = _conductance(model, "rb", element.parameter("m", 1.0), temperature_rise(circuit, element, model))
+    return g_body > 0.0 and diode_conductance(circuit, element, forward) > ACROSS_R_B * g_body
+
+
+def _forward_volt(model: Model, element: Element, bias: Bias) -> float:
+    sign = -1.0 if is_p_channel(model) else 1.0
     drain, source = (float(bias.voltages[element.nodes[place]]) for place in (0, 2))
-    return sign * (source - drain) > FORWARD_VOLT
+    return sign * (source - drain)
+
+
+def diode_conductance(circuit: Circuit, element: Element, v: float) -> float:
+    """Give dI/dv of the body diode in S at its forward voltage v in V, gmin included; breakdown apart.
+
+    Forward and down to -3·n·V_T I = I_S·(e^(v/(n·V_T)) - 1), below it I = -I_S·(1 + 3·n·V_T/(e·v)); I_S(T) as of a
+    junction diode (Antognetti and Massobrio, "Semiconductor Device Modeling with SPICE", 1988, section 1.4).
+    """
+    model = circuit.model(element.model)
+    kelvin = device_temperature(circuit, element) + ZERO_CELSIUS
+    nominal = nominal_temperature(circuit, model) + ZERO_CELSIUS
+    n = model.parameter("n", 1.0)
+    nvt = n * BOLTZMANN_OVER_CHARGE * kelvin
+    warmer = kelvin / nominal
+    exponent = (warmer - 1.0) * model.parameter("eg", 1.11) / nvt + model.parameter("xti", 3.0) / n * math.log(warmer)
+    saturation = element.parameter("m", 1.0) * model.parameter("is", 1e-14) * math.exp(exponent)
+    gmin = dict(circuit.options).get("gmin", GMIN)
+    if v >= -3.0 * nvt:
+        return saturation * math.exp(v / nvt) / nvt + gmin
+    return saturation * 9.0 * nvt / (math.e * v**2) + gmin
 
 
 def _isolate(circuit: Circuit, element: Element, bias: Bias) -> Isolation | None:
@@ -88,7 +135,7 @@ def _linearise(circuit: Circuit, element: Element, bias: Bias) -> Device:
         reversed=read["vds"] < 0.0,
     )
     gm, g_o = read["gm"], read["gds"]
-    gmin = m * dict(circuit.options).get("gmin", GMIN)
+    g_diode = diode_conductance(circuit, element, _forward_volt(model, element, bias))
     parts = kept(
         (
             *series(name, ends, g_drain, g_source),
@@ -97,7 +144,7 @@ def _linearise(circuit: Circuit, element: Element, bias: Bias) -> Device:
             capacitance(name, inner_gate, ends.inner_source, read["cgs"], "c_gs"),
             capacitance(name, inner_gate, ends.inner_drain, read["cgd"], "c_gd"),
             conductance(name, source, inner_body, g_body, "g_body"),
-            conductance(name, drain, inner_body, gmin, "g_diode"),
+            conductance(name, drain, inner_body, g_diode, "g_diode"),
             capacitance(name, drain, inner_body, read["cds"], "c_db"),
         )
     )
