@@ -8,7 +8,8 @@ v(out_plus) - v(out_minus) = value·v(control). A current gain (F) and a transre
 to the voltage source whose branch current i they sense: the first carries value·i, the second forces value·i. A
 mutual inductance has the nodes of two inductances, which it refers to; it adds value·di(second)/dt to the voltage of
 the first, so that a pair of them couples both ways. A block has any nodes and carries Σ_j G_ij·v_j + value·Σ_j
-C_ij·dv_j/dt into itself at its node i. A voltage source forces v(a) - v(b); its branch current flows from a through
+C_ij·dv_j/dt into itself at its node i. A line has nodes (near_plus, near_minus, far_plus, far_minus) and the currents
+into both plus ends as unknowns. A voltage source forces v(a) - v(b); its branch current flows from a through
 the source to b. A current source pushes its current from a through itself to b.
 """
 
@@ -32,6 +33,7 @@ PartKind = Literal[
     "mutual inductance",
     "delayed transconductance",
     "block",
+    "line",
 ]
 
 Matrix = tuple[tuple[float, ...], ...]
@@ -46,7 +48,9 @@ class Part(Struct, frozen=True):
     nodes: two names, or four for the controlled kinds. value: S, F, H, S, F; for sources 0; V/V, A/A, ohm, H, S.
     amplitude: complex drive in V or A, of sources only. references: owners of the branches that it senses or couples.
     delay_s: of a delayed transconductance. conductances, capacitances: G in S and C in F of a block, in the order of
-    its nodes; its value is 1, and a factor on C.
+    its nodes; its value is 1, and a factor on C. surge_ohm, series_ohm: √(L/C) and the whole R of a line; its value is
+    its delay √(L·C) in s, so that L is surge_ohm·value and C value/surge_ohm; surge_ohm is 0 for a line of R and C
+    alone, whose value is R·C in s.
     """
 
     kind: PartKind
@@ -59,6 +63,8 @@ class Part(Struct, frozen=True):
     delay_s: float = 0.0
     conductances: Matrix = ()
     capacitances: Matrix = ()
+    surge_ohm: float = 0.0
+    series_ohm: float = 0.0
 
     @property
     def name(self) -> str:
@@ -133,6 +139,13 @@ def mutual_inductances(
 def block(owner: str, nodes: tuple[str, ...], conductances: Matrix, capacitances: Matrix, label: str = "") -> Part:
     """Matrices G in S and C in F between nodes, inner ones included: what one instance is beside its other parts."""
     return Part("block", owner, label, nodes, 1.0, conductances=conductances, capacitances=capacitances)
+
+
+def line(
+    owner: str, nodes: tuple[str, str, str, str], delay_s: float, surge_ohm: float = 0.0, series_ohm: float = 0.0
+) -> Part:
+    """A uniform line of the delay √(L·C) and √(L/C) = surge_ohm, R = series_ohm; of R·C = delay_s without surge_ohm."""
+    return Part("line", owner, "", nodes, delay_s, surge_ohm=surge_ohm, series_ohm=series_ohm)
 
 
 def voltage_source(owner: str, a: str, b: str, amplitude: complex = 0.0) -> Part:

@@ -1,4 +1,4 @@
-"""Y(s) and its slope dY/ds: here alone stands what is not G + s·C, a delay.
+"""Y(s) and its slope dY/ds: here alone stands what is not G + s·C, delays and the rows of lines.
 
 A transconductance g with the delay τ is g·exp(−s·τ). G holds g, so that with D = out·controlᵀ
 Y(s) = G + s·C + Σ g·(exp(−s·τ) − 1)·D and dY/ds = C − Σ g·τ·exp(−s·τ)·D.
@@ -16,6 +16,7 @@ from numpy.typing import NDArray
 from tauledger.circuit import GROUND
 from tauledger.devices.parts import Part, capacitance, conductance, transconductance
 from tauledger.network.assemble import Network, Triplets, assemble, incidence
+from tauledger.network.lines import line_moments, line_rows
 
 if TYPE_CHECKING:
     from tauledger.network.solve import Solution
@@ -60,11 +61,13 @@ def delays(network: Network) -> Delays:
 def admittance(network: Network, s: Complex) -> Complex:
     """Give Y(s) dense, (k, n, n), for s (k,)."""
     y = network.conductance.dense(network.size) + s[:, None, None] * network.capacitance.dense(network.size)
-    if not network.delayed:
-        return y
-    terms = delays(network)
-    lag = terms.delayed(s) - terms.value
-    return np.asarray(y + np.einsum("nm,km,jm->knj", terms.out, lag, terms.control), dtype=np.complex128)
+    if network.delayed:
+        terms = delays(network)
+        lag = terms.delayed(s) - terms.value
+        y = np.asarray(y + np.einsum("nm,km,jm->knj", terms.out, lag, terms.control), dtype=np.complex128)
+    for line in line_rows(network, s):
+        y[:, np.array(line.row)[:, None], list(line.columns)] = line.entries
+    return y
 
 
 def coordinates(network: Network, s: complex) -> tuple[NDArray[np.intp], NDArray[np.intp], Complex]:
@@ -80,27 +83,34 @@ def coordinates(network: Network, s: complex) -> tuple[NDArray[np.intp], NDArray
         row.append(at[0])
         column.append(at[1])
         value.append(extra[at])
+    for line in line_rows(network, np.array([s], dtype=complex)):
+        row.append(np.repeat(line.row, len(line.columns)))
+        column.append(np.tile(line.columns, 2))
+        value.append(line.entries[0].ravel())
     return np.concatenate(row), np.concatenate(column), np.concatenate(value)
 
 
 def slope_moment(network: Network, solution: Solution) -> Complex:
     """Give λᵀ (dY/ds) x at every s of the solution, (k,)."""
     moment: Complex = np.sum(solution.adjoint * times(network.capacitance, solution.x), axis=1)
-    if not network.delayed:
-        return moment
-    return np.asarray(moment + np.sum(_delay_products(delays(network), solution), axis=1), dtype=np.complex128)
+    if network.delayed:
+        moment = moment + np.sum(_delay_products(delays(network), solution), axis=1)
+    for of_line in line_moments(network, solution).values():
+        moment = moment + of_line
+    return moment
 
 
 def delay_moments(network: Network, solution: Solution) -> dict[str, Complex]:
-    """Give λᵀ (∂Y/∂ln τ) x / (s·H) of every part with a delay by its name, each (k,), in s.
+    """Give λᵀ (∂Y/∂ln τ) x / (s·H) of every part with a delay by its name, each (k,), in s; lines are among them.
 
     It stands beside the moments of the reactive parts: scaling all of them and all delays scales frequency.
     """
-    if not network.delayed:
-        return {}
-    terms = delays(network)
-    products = _delay_products(terms, solution) / solution.response[:, None]
-    return {name: products[:, k] for k, name in enumerate(terms.names)}
+    found = {name: moment / solution.response for name, moment in line_moments(network, solution).items()}
+    if network.delayed:
+        terms = delays(network)
+        products = _delay_products(terms, solution) / solution.response[:, None]
+        found |= {name: products[:, k] for k, name in enumerate(terms.names)}
+    return found
 
 
 def _delay_products(terms: Delays, solution: Solution) -> Complex:

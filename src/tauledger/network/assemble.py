@@ -4,6 +4,7 @@ Y(s) = G + s·C acts on the unknowns x = (node voltages, branch currents); Y x =
 drive b, Yᵀ λ = e the adjoint problem with the output e, and H = eᵀ x = λᵀ b.
 Branch unknowns belong to voltage sources (v_a - v_b = V), inductors (v_a - v_b - s·L·i - Σ s·M·i_k = 0), voltage
 gains (v_a - v_b - A·v(control) = 0) and transresistances (v_a - v_b - R·i_k = 0).
+A line has two, the currents into its ends, and rows that are no part of G + s·C: `lines` knows them.
 G holds a delayed transconductance as it is at s = 0; `admittance` alone knows the delay.
 
 Source: Ho, Ruehli and Brennan, "The modified nodal approach to network analysis", IEEE Trans. Circuits Syst.
@@ -19,6 +20,7 @@ from msgspec import Struct
 from numpy.typing import NDArray
 
 from tauledger.circuit import GROUND, Port, fold
+from tauledger.devices.family import inner_node
 from tauledger.devices.parts import WITH_BRANCH, Part, voltage_source
 from tauledger.errors import NetworkError
 
@@ -43,7 +45,8 @@ class Network(Struct, frozen=True):
     parts: what it was built from. unknowns: node names, then the owners of the branch currents. n_nodes: how
     many are nodes.
     conductance G and capacitance C: triplets of order n. drive b: (n,) complex, V or A. output e: (n,) real.
-    amplitudes: complex amplitude of every source by its folded name, V or A. delayed: the parts with a delay.
+    amplitudes: complex amplitude of every source by its folded name, V or A. delayed: the transconductances with a
+    delay. lines: the lines, whose rows G + s·C leaves empty.
     """
 
     parts: tuple[Part, ...]
@@ -56,6 +59,7 @@ class Network(Struct, frozen=True):
     output: NDArray[np.float64]
     amplitudes: Mapping[str, complex]
     delayed: tuple[Part, ...] = ()
+    lines: tuple[Part, ...] = ()
 
     @classmethod
     def from_parts(cls, parts: Iterable[Part], *, output: Port, drive: Mapping[str, complex] | None = None) -> Network:
@@ -102,7 +106,7 @@ def assemble(parts: tuple[Part, ...], port: Port, drive: Mapping[str, complex]) 
         twice = sorted({name for name in names if names.count(name) > 1})
         raise NetworkError(f"two parts of one name: {', '.join(twice)}")
     nodes = list(dict.fromkeys(node for part in parts for node in part.nodes if node != GROUND))
-    branches = [part.owner for part in parts if part.kind in WITH_BRANCH]
+    branches = [name for part in parts for name in _branches(part)]
     row_of = {fold(owner): row for row, owner in enumerate(branches, start=len(nodes))}
     at: dict[str, int] = {node: row for row, node in enumerate(nodes)}
     n = len(nodes) + len(branches)
@@ -151,6 +155,11 @@ def assemble(parts: tuple[Part, ...], port: Port, drive: Mapping[str, complex]) 
                 else:
                     b[branch] = amplitudes[fold(part.owner)]
                 branch += 1
+            case "line":
+                near_plus, near_minus, far_plus, far_minus = rows
+                g_rows += [(near_plus, branch, 1.0), (near_minus, branch, -1.0)]
+                g_rows += [(far_plus, branch + 1, 1.0), (far_minus, branch + 1, -1.0)]
+                branch += 2
             case "current source":
                 p, m = rows
                 amplitude = amplitudes[fold(part.owner)]
@@ -169,7 +178,15 @@ def assemble(parts: tuple[Part, ...], port: Port, drive: Mapping[str, complex]) 
         output=_selector(port, at, branches, n),
         amplitudes=amplitudes,
         delayed=tuple(part for part in parts if part.kind == "delayed transconductance"),
+        lines=tuple(part for part in parts if part.kind == "line"),
     )
+
+
+def _branches(part: Part) -> tuple[str, ...]:
+    """Name the branch currents of a part."""
+    if part.kind == "line":
+        return part.owner, inner_node(part.owner, "far")
+    return (part.owner,) if part.kind in WITH_BRANCH else ()
 
 
 def without_loose_ends(parts: Iterable[Part]) -> tuple[Part, ...]:

@@ -27,7 +27,7 @@ def obstacle(parts: Iterable[Part], inside: Collection[str], port: Port) -> str:
     owners = {fold(part.owner) for part in within}
     if any(part.amplitude for part in within):
         return "a driven source is inside"
-    if any(part.kind == "delayed transconductance" for part in within):
+    if any(part.kind in ("delayed transconductance", "line") for part in within):
         return "a delay is inside"
     if any(fold(owner) in owners for part in parts if part.name not in inside for owner in part.references):
         return "a source outside refers to a current inside"
