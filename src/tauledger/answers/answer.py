@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from msgspec import Struct
+from msgspec.structs import replace
 
 from tauledger.asked import Asked
 from tauledger.circuit import Change
@@ -31,5 +32,8 @@ def answer(found: Review, subject: Subject, asked: Asked) -> Review:
 
     Raises InputError for a question that this circuit cannot answer.
     """
-    del subject, asked
+    if asked.curve is not None:
+        from tauledger.answers.curve import compare_curve
+
+        found = replace(found, curve=compare_curve(found, subject, asked.curve))
     return found

@@ -4,16 +4,24 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from functools import wraps
+from pathlib import Path
+from typing import TYPE_CHECKING
 
 import click
 
 from tauledger.commands.console import hertz
-from tauledger.errors import ExitCode
+from tauledger.errors import ExitCode, InputError
+
+if TYPE_CHECKING:
+    from tauledger.asked import MeasuredCurve
 
 Command = Callable[..., ExitCode]
 
 _OPTIONS = (
     click.option("--at", "at", metavar="HZ", multiple=True, help="Gain and phase at HZ, e.g. 10meg; repeatable."),
+    click.option(
+        "--curve", "curve", metavar="CSV", help="Set a measured curve (f_hz,gain_db,phase_deg) beside ngspice."
+    ),
 )
 
 
@@ -21,12 +29,26 @@ def questions(command: Command) -> Command:
     """Give `command`, which takes `asked: Asked`, the options that ask; InputError where one cannot be used."""
 
     @wraps(command)
-    def asking(*, at: tuple[str, ...], **others: object) -> ExitCode:
+    def asking(*, at: tuple[str, ...], curve: str | None, **others: object) -> ExitCode:
         from tauledger.asked import Asked
 
-        asked = Asked(at_hz=tuple(hertz("--at", given) for given in at))
+        asked = Asked(
+            at_hz=tuple(hertz("--at", given) for given in at),
+            curve=None if curve is None else _measured(curve),
+        )
         return command(asked=asked, **others)
 
     for option in reversed(_OPTIONS):
         asking = option(asking)
     return asking
+
+
+def _measured(path: str) -> MeasuredCurve:
+    from tauledger.answers.curve_file import read_curve
+
+    try:
+        data = Path(path).read_bytes()
+    except OSError as error:
+        hint = "give a CSV file with the columns f_hz, gain_db and, where measured, phase_deg"
+        raise InputError(f"--curve {path}: cannot be read: {error.strerror}", hint) from error
+    return read_curve(data, path)
