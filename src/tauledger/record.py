@@ -506,7 +506,7 @@ class StrayFacts(Struct, frozen=True):
 
     plus: str
     minus: str
-    farad: float
+    capacitance_f: float
     rms_db: float
     f_high_rerun_hz: float | None = None
     rerun: bool = False
@@ -539,6 +539,130 @@ class CurveFacts(Struct, frozen=True):
     explains: str
     strays: tuple[StrayFacts, ...]
     points: tuple[CurvePoint, ...]
+
+
+class SlewFacts(Struct, frozen=True):
+    """How fast transistors can move one node at full size: SR = I/C, and the full-power bandwidth SR/(2π·V_peak).
+
+    drivers: the transistor, or the two of a pair that gives its tail current. current_a: what can be delivered.
+    capacitance_f: what is charged, counted at this node; behind: nodes behind resistors that count in it.
+    volt_per_output_volt: |v(node)/v(output)|, mid-band. *_v_per_s: slew rate at the node, and as it shows at the output.
+    full_power_hz: at the amplitude of `LargeSignal`. cut_off_v: peak at the output from which a transistor here is cut
+    off in mid-band already, None where the signal does not move its current.
+    """
+
+    node: str
+    title: str
+    drivers: tuple[str, ...]
+    current_a: float
+    capacitance_f: float
+    behind: tuple[str, ...]
+    volt_per_output_volt: float
+    slew_v_per_s: float
+    output_slew_v_per_s: float
+    full_power_hz: float
+    cut_off_v: float | None
+
+
+class LargeSignal(Struct, frozen=True):
+    """The nodes of the signal path by their full-power bandwidth, the lowest first.
+
+    swing_v: peak at the output. asked: the user gave it. not_judged: titles of nodes where no one current is the limit.
+    """
+
+    swing_v: float
+    asked: bool
+    nodes: tuple[SlewFacts, ...]
+    not_judged: tuple[str, ...]
+
+
+class OutputRow(Struct, frozen=True):
+    """A further output of the same run, against its own plateau: gain, f_L and f_H, exact and simulated.
+
+    simulated_db: of the gain at frequency_hz.
+    """
+
+    name: str
+    unit: str
+    frequency_hz: float
+    gain_real: float
+    gain_imag: float
+    gain_db: float
+    simulated_db: float | None
+    f_low_exact_hz: float | None
+    f_low_simulated_hz: float | None
+    f_high_exact_hz: float | None
+    f_high_simulated_hz: float | None
+
+
+class ModeRow(Struct, frozen=True):
+    """Differential and common-mode gain at one frequency ("mid-band" or "f_H"), in dB; None where it is nothing at all.
+
+    cmrr_db: the one less the other.
+    """
+
+    at: str
+    hz: float
+    differential_db: float
+    common_db: float | None
+    cmrr_db: float | None
+    differential_simulated_db: float | None
+    common_simulated_db: float | None
+    cmrr_simulated_db: float | None
+
+
+class ModesFacts(Struct, frozen=True):
+    """Gain from plus less minus, and from both moved together, of two sources; unit as of the mid-band gain."""
+
+    plus: str
+    minus: str
+    unit: str
+    rows: tuple[ModeRow, ...]
+
+
+class ImpedancePoint(Struct, frozen=True):
+    """An impedance at one frequency ("mid-band" or "f_H") as R in parallel with C, exact; a negative farad is inductive.
+
+    simulated_*: ngspice's own, None where nothing was simulated.
+    """
+
+    at: str
+    hz: float
+    real_ohm: float
+    imag_ohm: float
+    parallel_ohm: float | None
+    parallel_farad: float | None
+    simulated_real_ohm: float | None = None
+    simulated_imag_ohm: float | None = None
+
+
+class ImpedanceFacts(Struct, frozen=True):
+    """An impedance that the drive or the load sees.
+
+    side: input or output. of: the source, or the output. says: what is in it and what is left out. left_out: names.
+    hand_ohm, hand_text: at mid-band by looking in, None and the reason where no rule gives it. curve: over the sweep.
+    """
+
+    side: str
+    of: str
+    says: str
+    left_out: tuple[str, ...]
+    points: tuple[ImpedancePoint, ...]
+    hand_ohm: float | None
+    hand_text: str
+    frequency_hz: tuple[float, ...]
+    exact_ohm: tuple[float, ...]
+    exact_deg: tuple[float, ...]
+    simulated_ohm: tuple[float, ...] | None
+    simulated_deg: tuple[float, ...] | None
+
+
+class AddedPart(Struct, frozen=True):
+    """A resistance (R, ohm) or capacitance (C, farad) added from a node to ground, as of a probe."""
+
+    node: str
+    kind: str
+    value: float
 
 
 class Review(Struct, frozen=True):
@@ -574,6 +698,11 @@ class Review(Struct, frozen=True):
     moved: tuple[MovedFigure, ...] = ()
     helps: tuple[Help, ...] = ()
     curve: CurveFacts | None = None
+    large_signal: LargeSignal | None = None
+    outputs: tuple[OutputRow, ...] = ()
+    modes: ModesFacts | None = None
+    impedances: tuple[ImpedanceFacts, ...] = ()
+    added: tuple[AddedPart, ...] = ()
 
 
 DEVICES_SCHEMA = "tauledger.devices/1"

@@ -244,9 +244,9 @@ def _proven(
         from tauledger.network.added import places, response_with
 
         place = places(numbers.network, [(stray.plus, stray.minus)], target.frequency_hz)
-        curve = _db(response_with(place, np.array([stray.farad]))[:, 0])
+        curve = _db(response_with(place, np.array([stray.capacitance_f]))[:, 0])
         return replace(stray, rms_db=rms_db(target, curve)), curve
-    engine.bias(with_capacitor(circuit, stray.plus, stray.minus, stray.farad), ())
+    engine.bias(with_capacitor(circuit, stray.plus, stray.minus, stray.capacitance_f), ())
     curve = _db(engine.sweep(target.frequency_hz).response)
     again = simulate(engine.sweep, numbers.simulated.sweep.frequency_hz, midband=numbers.midband)
     engine.bias(circuit, ())

@@ -12,6 +12,7 @@ from msgspec import Struct
 
 from tauledger.record import CauseFacts, Review
 from tauledger.report.charts.bars import bars_text
+from tauledger.report.curve import differs_text, explains_text, level_text
 from tauledger.report.drawing.stage import MOST_STAGES, drawable
 from tauledger.report.sentences import (
     Answer,
@@ -26,6 +27,7 @@ from tauledger.report.sentences import (
     plain,
     sentence,
 )
+from tauledger.report.tables import curve as measured
 from tauledger.report.tables import helps, lower, outside, roots, setting, upper, way
 from tauledger.report.tables.grid import Grid
 from tauledger.report.tables.working import Lines, working
@@ -105,6 +107,7 @@ def document(review: Review) -> Document:
         _causes(review),
         _helps(review),
         _own(review),
+        _curve(review),
         _lower(review),
         _stages(review),
         _devices(review),
@@ -214,6 +217,10 @@ def _bode(review: Review) -> Section:
         "for every node and every capacitor that counts, without zeros and without the load of one on the other; it "
         "serves near the band, and far from it is off by tens of dB. Phase: of the output against the drive at 0°."
     )
+    if review.curve is not None:
+        caption += " Squares: the measured curve at the level of the simulation."
+        if review.curve.strays:
+            caption += " Dotted: ngspice with the stray capacitance that explains it best."
     return Section("bode", "Frequency response", (Picture("bode", caption),), ("Pole, zero",))
 
 
@@ -248,6 +255,15 @@ def _own(review: Review) -> Section:
     items = tuple(Item(name, sentence(plain(says, review))) for name, says in outside.verdicts(review))
     blocks: tuple[Block, ...] = (outside.own_figures(review), *((Items(items),) if items else ()))
     return Section("own", "Your own figures", blocks)
+
+
+def _curve(review: Review) -> Section:
+    curve = review.curve
+    if curve is None:
+        return Section("measured", "", ())
+    blocks: list[Block] = [measured.measured_edges(curve)] if curve.figures else []
+    blocks += [Prose(level_text(curve)), Prose(differs_text(curve)), Prose(explains_text(review, curve))]
+    return Section("measured", "The measured curve", tuple(blocks))
 
 
 def _set(review: Review) -> Section:

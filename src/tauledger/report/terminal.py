@@ -9,7 +9,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from tauledger.record import NodeRow, Review
-from tauledger.report import changed, helps, lower, paper, poles, reasons, steps, summary, upper
+from tauledger.report import changed, curve, helps, lower, paper, poles, reasons, steps, summary, upper
 from tauledger.report.layout import CAUTION, HEADING, STRONG, WARNING, Line, Section, lay_out
 from tauledger.report.working import workings
 
@@ -39,6 +39,7 @@ def render(
         changed.changed(review),
         summary.operating_points(review, verbose=verbose),
         paper.own_page(review),
+        curve.measured_curve(review),
         reasons.causes(review, verbose=verbose),
         upper.upper_budget(review, verbose=verbose),
         steps.steps(review, "f_high"),

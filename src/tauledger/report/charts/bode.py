@@ -1,12 +1,14 @@
-"""The frequency response: magnitude above phase, the simulation as a solid line, hand analysis as a dashed one."""
+"""The frequency response: magnitude above phase; simulation solid, hand analysis dashed, a measured curve as marks."""
 
 from __future__ import annotations
 
 import math
-from typing import TYPE_CHECKING
+from collections.abc import Mapping
+from typing import TYPE_CHECKING, Any
 
-from tauledger.record import Curves, Review
+from tauledger.record import CurveFacts, Curves, Review
 from tauledger.report.charts.style import blank, light, styled, to_svg
+from tauledger.report.curve import place_text
 from tauledger.report.tables.roots import Root, near_roots
 from tauledger.report.wording import number
 
@@ -49,17 +51,17 @@ def bode_chart(review: Review, *, narrow: bool = False) -> str:
         shown = [k for k, f in enumerate(curves.frequency_hz) if first <= f <= last]
         frequency = [curves.frequency_hz[k] for k in shown]
         at = _nearest(curves, review.midband.frequency_hz)
-        gain = complex(review.midband.gain_real, review.midband.gain_imag)
-        midband_deg = math.degrees(math.atan2(gain.imag, gain.real))
+        midband_deg = _midband_deg(review)
         for name, label, magnitude, phase, look in lines:
             if magnitude is None or phase is None:
                 continue
             turns = 360.0 * round((midband_deg - phase[at]) / 360.0)
             upper.plot(frequency, [magnitude[k] for k in shown], color=light(name), label=label, **look)
             lower.plot(frequency, [phase[k] + turns for k in shown], color=light(name), **look)
+        top, bottom = _magnitude_range(review, curves, shown)
+        _measured(upper, lower, review, first, last)
         upper.set_xscale("log")
         upper.set_xlim(first, last)
-        top, bottom = _magnitude_range(review, curves, shown)
         upper.set_ylim(bottom, top)
         upper.set_ylabel(f"magnitude in {DECIBEL.get(review.midband.unit, 'dB')}")
         lower.set_ylabel("phase in degrees")
@@ -106,6 +108,44 @@ def _nearest(curves: Curves, hz: float) -> int:
     """Give the place of the frequency next to `hz`, where phases are brought to the same turn."""
     wanted = hz or curves.frequency_hz[0]
     return min(range(len(curves.frequency_hz)), key=lambda k: abs(math.log(curves.frequency_hz[k] / wanted)))
+
+
+def _measured(upper: Axes, lower: Axes, review: Review, first: float, last: float) -> None:
+    """Mark the points of a measured curve, its level taken out, and draw ngspice with the best stray as a line."""
+    curve = review.curve
+    if curve is None:
+        return
+    points = [point for point in curve.points if first <= point.frequency_hz <= last]
+    frequency = [point.frequency_hz for point in points]
+    look: Mapping[str, Any] = {
+        "linestyle": "none",
+        "marker": "s",
+        "markersize": 3.4,
+        "markerfacecolor": "none",
+        "color": light("yours"),
+    }
+    upper.plot(frequency, [point.reference_db + point.difference_db for point in points], label="measured", **look)
+    explained = [point.explained_db for point in points if point.explained_db is not None]
+    if explained and len(explained) == len(points):
+        label = f"with {place_text(curve.strays[0])}"
+        level = [gain - curve.offset_db for gain in explained]
+        dotted: Mapping[str, Any] = {"linestyle": (0, (1, 1.4)), "linewidth": 1.6, "color": light("yours")}
+        upper.plot(frequency, level, label=label, **dotted)
+    by_phase = [(point.reference_deg, point.difference_deg) for point in points if point.difference_deg is not None]
+    if by_phase and review.curves is not None:
+        turns = 360.0 * round((_midband_deg(review) - _nearest_deg(review, curve)) / 360.0)
+        lower.plot(frequency, [degrees + off + turns for degrees, off in by_phase], **look)
+
+
+def _midband_deg(review: Review) -> float:
+    gain = complex(review.midband.gain_real, review.midband.gain_imag)
+    return math.degrees(math.atan2(gain.imag, gain.real))
+
+
+def _nearest_deg(review: Review, curve: CurveFacts) -> float:
+    """Give the phase of the reference at the point next to mid-band, by which its turns are counted."""
+    wanted = review.midband.frequency_hz or curve.points[0].frequency_hz
+    return min(curve.points, key=lambda point: abs(math.log(point.frequency_hz / wanted))).reference_deg
 
 
 def _degrees(axes: Axes) -> None:
