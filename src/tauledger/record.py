@@ -546,7 +546,7 @@ class SlewFacts(Struct, frozen=True):
 
     drivers: the transistor, or the two of a pair that gives its tail current. current_a: what can be delivered.
     capacitance_f: what is charged, counted at this node; behind: nodes behind resistors that count in it.
-    volt_per_output_volt: |v(node)/v(output)|, mid-band. *_v_per_s: slew rate at the node, and as it shows at the output.
+    volt_per_output_volt: |v(node)/v(output)|, mid-band. *_v_per_s: slew rate at the node, and as the output shows it.
     full_power_hz: at the amplitude of `LargeSignal`. cut_off_v: peak at the output from which a transistor here is cut
     off in mid-band already, None where the signal does not move its current.
     """
@@ -621,7 +621,7 @@ class ModesFacts(Struct, frozen=True):
 
 
 class ImpedancePoint(Struct, frozen=True):
-    """An impedance at one frequency ("mid-band" or "f_H") as R in parallel with C, exact; a negative farad is inductive.
+    """An impedance at one frequency ("mid-band" or "f_H") as R in parallel with C, exact; negative farad: inductive.
 
     simulated_*: ngspice's own, None where nothing was simulated.
     """
@@ -665,6 +665,129 @@ class AddedPart(Struct, frozen=True):
     value: float
 
 
+class UnityElement(Struct, frozen=True):
+    """What one element does to unity gain, exact to first order; a resistor by its resistance, value in `unit`.
+
+    name, free, moves_bias: as in `Help`. f_unity, gain_bandwidth: shares, −∂ln f_u/∂ln(value) and that of |A_mid|·f_H.
+    phase_margin_deg, gain_margin_db: change of the margins per per cent more of it. *_rerun*: f_u and phase margin
+    computed again with 10 % less of it, the operating point held; None where that was not done.
+    """
+
+    name: str
+    owner: str
+    nodes: tuple[str, ...]
+    value: float
+    unit: str
+    free: bool
+    moves_bias: bool
+    f_unity: float
+    phase_margin_deg: float
+    gain_margin_db: float | None
+    gain_bandwidth: float | None
+    f_unity_rerun_hz: float | None = None
+    phase_margin_rerun_deg: float | None = None
+
+
+class UnityNode(Struct, frozen=True):
+    """What a capacitance from one node to ground costs: per_farad ∂f_u/∂C in Hz/F, margin_slope in degrees per farad.
+
+    one_picofarad_*: f_u and phase margin computed again with 1 pF there.
+    """
+
+    node: str
+    title: str
+    per_farad: float
+    margin_slope: float
+    one_picofarad_hz: float | None
+    one_picofarad_margin_deg: float | None
+
+
+class UnityFacts(Struct, frozen=True):
+    """The unity gain frequency f_u: the first |H| = 1 beyond mid-band, of a ratio that exceeds 1 there.
+
+    hand_hz: mid-band gain times f_H by hand, as one dominant pole has it; difference: hand_hz/simulated_hz − 1 (against
+    exact where nothing was simulated). slope: d ln|H|/d ln f there, exact. phase_margin_deg: 180° plus the phase beyond
+    mid-band; gain_margin_db: how far |H| is below 1 where that phase first reaches −180°, None where it never does;
+    both simulated, *_exact_* by algebra. gain_bandwidth_hz: |A_mid|·f_H, simulated. further_hz: later |H| = 1, exact.
+    elements, nodes: given where the review has a section on unity gain, the largest effect first.
+    """
+
+    simulated_hz: float | None
+    exact_hz: float | None
+    hand_hz: float | None
+    difference: float | None
+    slope: float | None
+    phase_margin_deg: float | None
+    phase_margin_exact_deg: float | None
+    gain_margin_db: float | None
+    gain_margin_exact_db: float | None
+    gain_margin_at_hz: float | None
+    gain_margin_exact_at_hz: float | None
+    gain_bandwidth_hz: float | None
+    gain_bandwidth_exact_hz: float | None
+    further_hz: tuple[float, ...] = ()
+    elements: tuple[UnityElement, ...] = ()
+    nodes: tuple[UnityNode, ...] = ()
+
+
+class AtElement(Struct, frozen=True):
+    """What one element does at a frequency, exact to first order; a resistor by its resistance, value in `unit`.
+
+    gain: ∂ln|H|/∂ln(value). phase_deg: change of the phase per per cent more of it.
+    """
+
+    name: str
+    owner: str
+    nodes: tuple[str, ...]
+    value: float
+    unit: str
+    gain: float
+    phase_deg: float
+
+
+class AtFacts(Struct, frozen=True):
+    """Gain and phase at one frequency that was asked for.
+
+    *_db: |H| in decibel. *_beyond_deg: phase less that at mid-band, continuous; *_deg: phase of the output against the
+    drive, continuous from mid-band. elements: the largest effect first.
+    """
+
+    hz: float
+    simulated_db: float | None
+    simulated_deg: float | None
+    simulated_beyond_deg: float | None
+    exact_db: float | None
+    exact_deg: float | None
+    exact_beyond_deg: float | None
+    elements: tuple[AtElement, ...] = ()
+
+
+class PeakElement(Struct, frozen=True):
+    """What one element does to the peaking; peaking_db: change in dB per per cent more of it, exact to first order.
+
+    rerun_db: the peaking computed again with 10 % less of it; None where that was not done.
+    """
+
+    name: str
+    owner: str
+    nodes: tuple[str, ...]
+    value: float
+    unit: str
+    peaking_db: float
+    rerun_db: float | None = None
+
+
+class PeakFacts(Struct, frozen=True):
+    """The highest gain of one side ("f_high" or "f_low") above mid-band, simulated and exact, and where in Hz."""
+
+    edge: str
+    simulated_db: float | None
+    simulated_at_hz: float | None
+    exact_db: float
+    exact_at_hz: float
+    elements: tuple[PeakElement, ...] = ()
+
+
 class Review(Struct, frozen=True):
     """One review of one netlist under one condition."""
 
@@ -703,6 +826,9 @@ class Review(Struct, frozen=True):
     modes: ModesFacts | None = None
     impedances: tuple[ImpedanceFacts, ...] = ()
     added: tuple[AddedPart, ...] = ()
+    f_unity: UnityFacts | None = None
+    at: tuple[AtFacts, ...] = ()
+    peaking: tuple[PeakFacts, ...] = ()
 
 
 DEVICES_SCHEMA = "tauledger.devices/1"
