@@ -27,7 +27,7 @@ def helps(numbers: Numbers) -> tuple[Help, ...]:
     if not numbers.trusted:
         return ()
     network, midband, edges = numbers.network, numbers.midband, numbers.edges
-    elements = [part for part in network.parts if _is_element(part)]
+    elements = [part for part in network.parts if is_element(part)]
     found = sensitivities(network, midband, edges, elements)
     rows = [
         row
@@ -44,7 +44,8 @@ def helps(numbers: Numbers) -> tuple[Help, ...]:
     return (*proven, *rows[RERUN:])
 
 
-def _is_element(part: Part) -> bool:
+def is_element(part: Part) -> bool:
+    """Whether a part is something to choose or to blame: a card, a device's capacitance or its gm."""
     card = part.name == part.owner
     if part.kind in ("capacitance", "inductance"):
         return part.value > 0.0
@@ -56,22 +57,22 @@ def _is_element(part: Part) -> bool:
 def _row(part: Part, change: Sensitivity, numbers: Numbers) -> Help:
     # a resistance is the inverse of the part's value: less of it is more conductance
     sign = LESS if part.kind == "conductance" else -LESS
-    card = part.name == part.owner
+    card, bias = part.name == part.owner, moves_bias(part, numbers)
     return Help(
         name=part.name,
         owner=part.owner,
         nodes=part.nodes,
         value=1.0 / part.value if part.kind == "conductance" else part.value,
         unit=UNITS.get(part.kind, "S"),
-        free=card and not _moves_bias(part, numbers),
-        moves_bias=_moves_bias(part, numbers),
+        free=card and not bias,
+        moves_bias=bias,
         f_high=None if change.f_high is None else sign * change.f_high,
         f_low=None if change.f_low is None else sign * change.f_low,
         gain=sign * change.gain,
     )
 
 
-def _moves_bias(part: Part, numbers: Numbers) -> bool:
+def moves_bias(part: Part, numbers: Numbers) -> bool:
     """Whether the element takes part in the operating point: a resistor that carries direct current, and any gm."""
     if part.kind in ("capacitance", "inductance"):
         return False
