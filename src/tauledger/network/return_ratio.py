@@ -1,0 +1,244 @@
+"""The return ratio T(s): what comes back to a source or an admittance when it alone acts, by algebra.
+
+Three places to take it. A *source* o·cᵀ of Y = Y₀ + o·cᵀ (gm of a transistor, E, F, G, H): T = cᵀ·Y₀⁻¹·o, and 1 + T =
+det Y/det Y₀. A *bilateral element*, by its admittance with the reference 0: the same with o = c. A *wire* into one
+terminal: a voltage e is put in series with it and a current j across it, each in turn with the loop closed; with v₁ the
+voltage on the far side of e = 1 and i₁ the current that goes on past j = 1, 1/(1 + T) = v₁ + i₁. With the two sides of
+the wire as a two-port that is T = (y₂₁ − y₁₂)/(y₁₁ + y₂₂ + 2·y₁₂): the return ratio of that part of the transmission
+which is not reciprocal. At the wire of a controlled source it is the return ratio of that source.
+
+Sources: Bode, "Network Analysis and Feedback Amplifier Design", 1945, chapters IV to VI (return ratio, return
+difference); Middlebrook, "Measurement of loop gain in feedback systems", Int. J. Electronics 38(4), 1975 (double
+injection); Rosenstark, "A simplified method of feedback amplifier analysis", IEEE Trans. Education E-17(4), 1974
+(asymptotic gain).
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from typing import Literal
+
+import numpy as np
+from msgspec import Struct
+from msgspec.structs import replace
+
+from tauledger.circuit import GROUND
+from tauledger.devices.parts import Part, voltage_source
+from tauledger.errors import InputError, NetworkError
+from tauledger.network.admittance import DENSE_LIMIT, admittance
+from tauledger.network.assemble import Network, assemble, incidence
+from tauledger.network.identities import Identity, check
+from tauledger.network.solve import Complex, Real, solve
+
+Kind = Literal["source", "admittance", "wire"]
+
+CURRENT_KINDS = ("transconductance", "delayed transconductance", "current gain")
+VOLTAGE_KINDS = ("voltage gain", "transresistance")
+CONTROLLED = (*CURRENT_KINDS, *VOLTAGE_KINDS)
+BILATERAL = ("conductance", "capacitance", "inductance")
+SERIES = "loop'e"
+IDENTITY = 1e-6
+
+
+class Term(Struct, frozen=True):
+    """One addend of c(s): vector·exp(−s·delay)·s^power."""
+
+    vector: Real
+    delay_s: float = 0.0
+    power: int = 0
+
+
+class Opening(Struct, frozen=True):
+    """Where a return ratio is taken: Y(s) = Y₀(s) + out·c(s)ᵀ, c the sum of the terms.
+
+    network: the reference, Y₀; of a wire the closed network with an AC short of its own, `SERIES`, in that wire, whose
+    far end is `far`. out: (n,). whole: the unchanged network.
+    """
+
+    kind: Kind
+    network: Network
+    whole: Network
+    out: Real
+    terms: tuple[Term, ...] = ()
+    far: str = ""
+
+
+class Asymptotic(Struct, frozen=True):
+    """H = H∞·T/(1 + T) + H₀/(1 + T) at every s, (k,) each: return ratio, ideal gain H∞ (T → ∞), feedthrough H₀."""
+
+    return_ratio: Complex
+    ideal: Complex
+    feedthrough: Complex
+
+    @property
+    def closed(self) -> Complex:
+        """Give H by the formula."""
+        t = self.return_ratio
+        return np.asarray((self.ideal * t + self.feedthrough) / (1.0 + t), dtype=np.complex128)
+
+
+def at_source(network: Network, parts: Sequence[Part]) -> Opening:
+    """Open at one controlled source, given by its parts: controls of one current, or voltages in series.
+
+    Raises InputError where these are no controlled sources of one output.
+    """
+    if not parts or any(part.kind not in CONTROLLED for part in parts):
+        raise InputError("a return ratio is taken at controlled sources", "name a transistor, or E, F, G, H, B")
+    names = {part.name for part in parts}
+    dead = tuple(replace(part, value=0.0) if part.name in names else part for part in network.parts)
+    reference = assemble(dead, network.port, network.amplitudes)
+    first = parts[0]
+    terms: list[Term] = []
+    if first.kind in CURRENT_KINDS:
+        out = incidence(reference, first.nodes[0], first.nodes[1])
+        for part in parts:
+            own = incidence(reference, part.nodes[0], part.nodes[1])
+            if part.kind not in CURRENT_KINDS or abs(abs(own @ out) - out @ out) > 0.0:
+                raise InputError(f"{part.owner} has several outputs", "name one source of one output")
+            sign = float(np.sign(own @ out))
+            terms.append(Term(sign * part.value * _sensed(reference, part), part.delay_s))
+    else:
+        out = np.zeros(reference.size)
+        out[reference.branch(first.owner)] = 1.0
+        terms += [Term(-part.value * _sensed(reference, part)) for part in parts]
+    return Opening("source", reference, network, out, tuple(terms))
+
+
+def at_admittance(network: Network, part: Part) -> Opening:
+    """Open at a resistor, capacitor or inductor: the return ratio of its admittance, the reference is none.
+
+    Raises InputError for a coupled inductor, or one whose current something else refers to.
+    """
+    if part.kind not in BILATERAL:
+        raise InputError(f"{part.name} is no resistor, capacitor or inductor", "name one, or a controlled source")
+    if part.kind == "inductance":
+        if any(part.owner in other.references for other in network.parts) or network.port.through == part.owner:
+            raise InputError(f"the current of {part.name} is used elsewhere: it cannot be taken out", "name another")
+        kept = tuple(other for other in network.parts if other is not part)
+        reference = assemble(kept, network.port, network.amplitudes)
+        value, power = 1.0 / part.value, -1
+    else:
+        dead = tuple(replace(other, value=0.0) if other is part else other for other in network.parts)
+        reference = assemble(dead, network.port, network.amplitudes)
+        value, power = part.value, 1 if part.kind == "capacitance" else 0
+    across = incidence(reference, part.nodes[0], part.nodes[1])
+    return Opening("admittance", reference, network, across, (Term(value * across, power=power),))
+
+
+def at_wire(network: Network, owner: str, node: str) -> Opening:
+    """Cut the wire from a node into all that one element has there, and bridge it with an AC short.
+
+    Raises InputError where that element has nothing there, or the node is ground.
+    """
+    mine = [part for part in network.parts if part.owner.partition("'")[0] == owner and node in part.nodes]
+    if node == GROUND or not mine:
+        raise InputError(f"no wire leads from {node} into {owner}", "name a terminal that carries signal")
+    far = f"{owner}'loop"
+    cut = {part.name for part in mine}
+    parts = tuple(
+        replace(part, nodes=tuple(far if at == node else at for at in part.nodes)) if part.name in cut else part
+        for part in network.parts
+    )
+    closed = assemble((*parts, voltage_source(SERIES, far, node)), network.port, network.amplitudes)
+    return Opening("wire", closed, network, np.zeros(closed.size), far=far)
+
+
+def return_ratio(opening: Opening, s: Complex) -> Complex:
+    """Give T at every s (k,) in rad/s.
+
+    Raises NetworkError where the network has no unique solution.
+    """
+    if opening.kind == "wire":
+        rest = _wire_rest(opening, s)
+        return np.asarray((1.0 - rest) / rest, dtype=np.complex128)
+    answer = _driven(opening.network, opening.out, s)
+    return np.asarray(np.sum(_control(opening, s) * answer, axis=1), dtype=np.complex128)
+
+
+def asymptotic(opening: Opening, s: Complex) -> Asymptotic:
+    """Give T, ideal gain and feedthrough at every s (k,) in rad/s; not defined for a wire.
+
+    H∞ = H₀ − (eᵀY₀⁻¹o)(cᵀY₀⁻¹b)/T, NaN where T = 0.
+    Source: Rosenstark, 1974, equations 8 and 9 (from memory).
+    Raises NetworkError where the reference has no unique solution.
+    """
+    if opening.kind == "wire":
+        raise ValueError("a wire has no single source: take the asymptotic gain at a source")
+    at = solve(opening.network, s)
+    control = _control(opening, s)
+    t = np.sum(control * _driven(opening.network, opening.out, s), axis=1)
+    passed = (at.adjoint @ opening.out) * np.sum(control * at.x, axis=1)
+    with np.errstate(divide="ignore", invalid="ignore"):
+        ideal = at.response - passed / t
+    ideal[t == 0.0] = np.nan
+    return Asymptotic(np.asarray(t, dtype=np.complex128), ideal, at.response)
+
+
+def ratio_to(opening: Opening, plus: str, minus: str, s: Complex) -> Complex:
+    """Give v(plus, minus) over what the source is controlled by, the source acting alone: (k,), without its gain.
+
+    The sign is that of a loop opened there: what the control makes of 1 V at the output is −1 over it.
+    Raises NetworkError where the reference has no unique solution, ValueError where the source has several controls.
+    """
+    if len(opening.terms) != 1:
+        raise ValueError("several controls have no common unit")
+    answer = _driven(opening.network, opening.out, s)
+    vector = opening.terms[0].vector
+    size = float(np.max(np.abs(vector)))
+    came_back = answer @ (vector / size) if size else np.zeros(len(s))
+    with np.errstate(divide="ignore", invalid="ignore"):
+        return np.asarray(answer @ incidence(opening.network, plus, minus) / came_back, dtype=np.complex128)
+
+
+def checked(opening: Opening, s: Complex, response: Complex) -> float:
+    """Give the largest relative error of H by the asymptotic formula against `response` (k,) of the closed network.
+
+    Checks as well that 1 + T is det Y/det Y₀.
+    Raises NetworkError where either does not hold within 1e-6.
+    """
+    found = asymptotic(opening, s)
+    scale = np.maximum(np.abs(response), np.abs(found.feedthrough))
+    error = float(np.max(np.abs(found.closed - response) / scale))
+    identities = [Identity("closed loop by the asymptotic gain formula", error, 0.0, IDENTITY, 1.0)]
+    if opening.network.size == opening.whole.size <= DENSE_LIMIT:
+        closed, reference = (np.linalg.slogdet(admittance(one, s)) for one in (opening.whole, opening.network))
+        difference = closed.sign / reference.sign * np.exp(closed.logabsdet - reference.logabsdet)
+        missed = np.abs(difference / (1.0 + found.return_ratio) - 1.0)
+        identities.append(Identity("1 + T = ratio of determinants", float(np.max(missed)), 0.0, IDENTITY, 1.0))
+    check(identities)
+    return error
+
+
+def _sensed(network: Network, part: Part) -> Real:
+    if part.references:
+        row = np.zeros(network.size)
+        row[network.branch(part.references[0])] = 1.0
+        return row
+    return incidence(network, part.nodes[-2], part.nodes[-1])
+
+
+def _control(opening: Opening, s: Complex) -> Complex:
+    """Give c(s), (k, n)."""
+    total = np.zeros((len(s), opening.network.size), dtype=complex)
+    for term in opening.terms:
+        total += (np.exp(-s * term.delay_s) * s**term.power)[:, None] * term.vector
+    return total
+
+
+def _driven(network: Network, right: Real, s: Complex) -> Complex:
+    """Give Y⁻¹·right at every s, (k, n)."""
+    return solve(replace(network, drive=right.astype(complex)), s).x
+
+
+def _wire_rest(opening: Opening, s: Complex) -> Complex:
+    """Give 1/(1 + T) = v₁ + i₁ of the double injection, (k,)."""
+    network = opening.network
+    branch, far = network.branch(SERIES), network.index(opening.far)
+    near = next(part for part in network.parts if part.owner == SERIES).nodes[1]
+    series = np.zeros(network.size)
+    series[branch] = 1.0
+    across = incidence(network, near, GROUND)
+    if far is None:
+        raise NetworkError("a wire to ground is cut")
+    # what goes on past the injected current comes through the short, from its far end to the near one
+    return _driven(network, series, s)[:, far] - _driven(network, across, s)[:, branch]
