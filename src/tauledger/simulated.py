@@ -10,6 +10,7 @@ from collections.abc import Callable
 
 import numpy as np
 from msgspec import Struct
+from msgspec.structs import replace
 from numpy.typing import NDArray
 
 from tauledger.network.midband import MidBand
@@ -26,39 +27,67 @@ RunSweep = Callable[[NDArray[np.float64]], Sweep]
 
 
 class Simulated(Struct, frozen=True):
-    """ngspice's answer: the sweep, its mid-band, and the first −3 dB crossings going outwards in Hz (None: none)."""
+    """ngspice's answer: the sweep, its mid-band, and the first −3 dB crossings going outwards in Hz (None: none).
+
+    ripple: evenly spaced frequencies beside the sweep where lines make |H| ripple; None without lines.
+    """
 
     sweep: Sweep
     midband: MidBand
     f_low_hz: float | None
     f_high_hz: float | None
+    ripple: Sweep | None = None
+
+    @property
+    def all_of_it(self) -> Sweep:
+        """Sweep and ripple as one, in ascending order."""
+        if self.ripple is None:
+            return self.sweep
+        frequency = np.concatenate([self.sweep.frequency_hz, self.ripple.frequency_hz])
+        order = np.argsort(frequency, kind="stable")
+        return Sweep(frequency[order], np.concatenate([self.sweep.response, self.ripple.response])[order])
 
 
-def simulate(run: RunSweep, frequency_hz: NDArray[np.float64], *, midband: MidBand | None) -> Simulated:
+def simulate(
+    run: RunSweep,
+    frequency_hz: NDArray[np.float64],
+    *,
+    midband: MidBand | None,
+    ripple_hz: tuple[NDArray[np.float64], ...] = (),
+) -> Simulated:
     """Sweep over these frequencies (n,) in Hz and refine both band edges.
 
     run: asks the engine for the response at any frequencies. midband: reference frequency and extent of the network,
     None to find the plateau in the sweep itself. A crossing is bracketed in the sweep and narrowed by two finer runs,
     then interpolated on ln|H| over ln f: to better than 1e-7.
+    ripple_hz: evenly spaced frequencies (k,) in Hz, each lot a run of its own, that follow what the sweep would miss.
     """
     sweep = run(frequency_hz)
+    ripple = _together([run(more) for more in ripple_hz])
     if midband is None:
         midband = sweep_midband(sweep)
     else:
         # ngspice has no AC at 0 Hz; far below the lowest edge the plateau has been reached.
         at_hz = midband.frequency_hz or float(frequency_hz[0])
-        midband = MidBand(
-            midband.frequency_hz, midband.from_hz, midband.to_hz, complex(run(np.array([at_hz])).response[0])
-        )
+        midband = replace(midband, gain=complex(run(np.array([at_hz])).response[0]))
     level = abs(midband.gain) * HALF_POWER
-    above = sweep.frequency_hz > midband.frequency_hz
-    below = sweep.frequency_hz < midband.frequency_hz
+    found = Simulated(sweep, midband, None, None, ripple)
+    followed = found.all_of_it
+    above = followed.frequency_hz > midband.frequency_hz
+    below = (followed.frequency_hz < midband.frequency_hz) & (followed.frequency_hz >= midband.floor_hz)
     start = midband.frequency_hz or float(frequency_hz[0])
-    return Simulated(
-        sweep,
-        midband,
-        _edge(run, start, sweep.frequency_hz[below][::-1], np.abs(sweep.response[below][::-1]), level),
-        _edge(run, start, sweep.frequency_hz[above], np.abs(sweep.response[above]), level),
+    return replace(
+        found,
+        f_low_hz=_edge(run, start, followed.frequency_hz[below][::-1], np.abs(followed.response[below][::-1]), level),
+        f_high_hz=_edge(run, start, followed.frequency_hz[above], np.abs(followed.response[above]), level),
+    )
+
+
+def _together(sweeps: list[Sweep]) -> Sweep | None:
+    if not sweeps:
+        return None
+    return Sweep(
+        np.concatenate([sweep.frequency_hz for sweep in sweeps]), np.concatenate([sweep.response for sweep in sweeps])
     )
 
 

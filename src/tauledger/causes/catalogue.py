@@ -61,6 +61,7 @@ NOTES: tuple[Callable[[Evidence], Note | None], ...] = (
     notes.neither_short_nor_open,
     notes.tuned,
     notes.coupled,
+    notes.measuring_aids,
     notes.ideal_drive,
     notes.model_without_charge,
     notes.as_rebuilt,

@@ -102,7 +102,7 @@ def levels_off_above(evidence: Evidence) -> Note | None:
 def levels_off_below(evidence: Evidence) -> Note | None:
     """The reference lies above DC, but |H| never falls 3 dB below it on the way down."""
     midband = evidence.bands.midband
-    if evidence.lower.hz is not None or midband.frequency_hz == 0.0 or midband.from_hz == 0.0:
+    if evidence.lower.hz is not None or midband.reaches_dc or midband.from_hz == 0.0:
         return None
     reach = frequency_range(evidence.poles, evidence.zeros)
     if reach is None:
@@ -203,6 +203,15 @@ def coupled(evidence: Evidence) -> Note | None:
         f"{names} are coupled: neither short nor open at mid-band, they count in the response, the band edges and "
         "their shares, and have no time constant by hand",
     )
+
+
+def measuring_aids(evidence: Evidence) -> Note | None:
+    """Inductors and capacitors that only set the operating point, as where a loop is opened for a measurement."""
+    aids = [part for part in evidence.bands.network.parts if part.name in evidence.bands.aids]
+    if not aids:
+        return None
+    told = ", ".join(f"{p.name} {engineering(p.value, 'H' if p.kind == 'inductance' else 'F', 3)}" for p in aids)
+    return Note("measuring-aids", ", ".join(part.name for part in aids), f"measuring aids left out: {told}")
 
 
 def ideal_drive(evidence: Evidence) -> Note | None:

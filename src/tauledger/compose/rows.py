@@ -52,6 +52,7 @@ def part_rows(numbers: Numbers, explanation: Explanation) -> tuple[PartRow, ...]
         open_row, short_row = opened.get(part.name), shorted.get(part.name)
         less = explanation.ten_percent_less.get(part.name, EdgeFrequencies(None, None))
         by_hand = explanation.hand.part_resistance.get(part.name) if explanation.hand else None
+        aid = part.name in numbers.bands.aids
         sets_gain = numbers.bands.class_of[part.name] == "gain" and short_row is not None
         hand_ohm = by_hand.ohm if by_hand is not None and not sets_gain else _lower_hand(explanation, part.name)
         hand_ohm = _finite(hand_ohm) if sets_gain else hand_ohm
@@ -70,8 +71,12 @@ def part_rows(numbers: Numbers, explanation: Explanation) -> tuple[PartRow, ...]
                 time_constant_s=_finite(_time_constant(open_row, short_row)),
                 edge_hz=_finite(short_row.edge_hz) if short_row else None,
                 zero_hz=_finite(short_row.zero_hz) if short_row else None,
-                share=EdgePair(_of(explanation.shares_high, part.name), _of(explanation.shares_low, part.name)),
-                ten_percent_less=TenPercent(less.f_high, less.f_low),
+                share=EdgePair(
+                    None if aid else _of(explanation.shares_high, part.name),
+                    None if aid else _of(explanation.shares_low, part.name),
+                ),
+                ten_percent_less=TenPercent(None, None) if aid else TenPercent(less.f_high, less.f_low),
+                aid=aid,
             )
         )
     return tuple(rows)

@@ -22,7 +22,7 @@ from tauledger.hand.estimate import LookingIn, LowerRow
 from tauledger.hand.figures import plain
 from tauledger.hand.nodes import node_name, node_title
 from tauledger.network.bands import Bands
-from tauledger.network.lower import ShortConstant, short_constants
+from tauledger.network.lower import ShortConstant, coupling_groups, short_constants
 from tauledger.network.shares import zero_shares
 from tauledger.network.solve import response
 from tauledger.quantity import engineering
@@ -44,26 +44,25 @@ def lower_rows(bands: Bands, devices: tuple[Device, ...]) -> tuple[LowerRow, ...
     Raises NetworkError where the mid-band circuit has no unique solution.
     """
     network = bands.network
-    shorts = [p for p in network.parts if p.kind == "capacitance" and bands.class_of[p.name] == "short" and p.value]
-    opens = {p.name for p in network.parts if p.kind in ("capacitance", "transcapacitance") and p not in shorts}
+    shorts = {
+        p.name for p in network.parts if p.kind == "capacitance" and bands.class_of[p.name] == "short" and p.value
+    }
+    opens = {p.name for p in network.parts if p.kind in ("capacitance", "transcapacitance")} - shorts
     opens -= bands.gain_setting
     chokes = {p.name for p in network.parts if p.kind == "inductance" and bands.class_of[p.name] == "open"}
     direct = _direct_nodes(bands)
-    groups: dict[tuple[str, ...], list[str]] = {}
-    for part in shorts:
-        ends = tuple(sorted(direct[node] for node in part.nodes))
-        if ends[0] != ends[1]:
-            groups.setdefault(ends, []).append(part.name)
-    farad = {part.name: part.value for part in shorts}
-    all_shorts = {part.name for part in shorts}
     found: list[tuple[LowerRow, float]] = []
-    for ends, names in groups.items():
-        smaller, merged = joined(network, all_shorts - {*names}, {*names, *opens, *chokes})
+    for group in coupling_groups(bands):
+        ends = sorted(direct[node] for node in group[0].nodes)
+        if ends[0] == ends[1]:
+            continue
+        names = tuple(part.name for part in group)
+        smaller, merged = joined(network, shorts - {*names}, {*names, *opens, *chokes})
         circuit = equivalent_circuit(smaller, merged, devices, network, bands.s_mid)
         a, b = (circuit.at[node] for node in ends)
         if a == b:
             continue
-        found.append(_row(bands, circuit, (a, b), tuple(names), sum(farad[name] for name in names)))
+        found.append(_row(bands, circuit, (a, b), names, sum(part.value for part in group)))
     setting = _setting(bands) if bands.gain_setting else ()
     scale = sum(abs(weight * row.edge_exact_hz) for row, weight in found)
     scale += sum(abs(constant.weight * constant.edge_hz) for constant in setting)

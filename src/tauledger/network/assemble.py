@@ -3,7 +3,8 @@
 Y(s) = G + s·C acts on the unknowns x = (node voltages, branch currents); Y x = b is the forward problem with the
 drive b, Yᵀ λ = e the adjoint problem with the output e, and H = eᵀ x = λᵀ b.
 Branch unknowns belong to voltage sources (v_a - v_b = V), inductors (v_a - v_b - s·L·i - Σ s·M·i_k = 0), voltage
-gains (v_a - v_b - A·v(control) = 0) and transresistances (v_a - v_b - R·i_k = 0).
+gains (v_a - v_b - A·v(control) = 0), transresistances (v_a - v_b - R·i_k = 0) and capacitors from 1 F on
+(s·C·(v_a - v_b) - i = 0).
 A line has two, the currents into its ends, and rows that are no part of G + s·C: `lines` knows them.
 G holds a delayed transconductance as it is at s = 0; `admittance` alone knows the delay.
 
@@ -23,6 +24,8 @@ from tauledger.circuit import GROUND, Port, fold
 from tauledger.devices.family import inner_node
 from tauledger.devices.parts import WITH_BRANCH, Part, voltage_source
 from tauledger.errors import NetworkError
+
+LARGE_FARAD = 1.0
 
 
 class Triplets(Struct, frozen=True):
@@ -125,6 +128,11 @@ def assemble(parts: tuple[Part, ...], port: Port, drive: Mapping[str, complex]) 
             raise NetworkError(f"{part.name} refers to {missing[0]}, which has no branch")
         sensed = [row_of[fold(owner)] for owner in part.references]
         match part.kind:
+            case "capacitance" if has_branch(part):
+                p, m = rows
+                g_rows += [(p, branch, 1.0), (m, branch, -1.0), (branch, branch, -1.0)]
+                c_rows += [(branch, p, part.value), (branch, m, -part.value)]
+                branch += 1
             case "conductance" | "capacitance":
                 p, m = rows
                 _stamp(g_rows if part.kind == "conductance" else c_rows, (p, m), (p, m), part.value)
@@ -186,7 +194,12 @@ def _branches(part: Part) -> tuple[str, ...]:
     """Name the branch currents of a part."""
     if part.kind == "line":
         return part.owner, inner_node(part.owner, "far")
-    return (part.owner,) if part.kind in WITH_BRANCH else ()
+    return (part.owner,) if part.kind in WITH_BRANCH else (part.name,) if has_branch(part) else ()
+
+
+def has_branch(part: Part) -> bool:
+    """Whether this is a capacitance so large that s·C beside what its nodes see would leave nothing but rounding."""
+    return part.kind == "capacitance" and part.value >= LARGE_FARAD
 
 
 def without_loose_ends(parts: Iterable[Part]) -> tuple[Part, ...]:

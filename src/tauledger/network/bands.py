@@ -9,11 +9,14 @@ import numpy as np
 from msgspec import Struct
 from msgspec.structs import replace
 
-from tauledger.circuit import GROUND, Port, fold
+from tauledger.circuit import fold
 from tauledger.devices.parts import Part
 from tauledger.errors import NetworkError
-from tauledger.network.assemble import Network, assemble, without_loose_ends
+from tauledger.network.assemble import Network, assemble
 from tauledger.network.gain_setting import gain_setting
+from tauledger.network.lines import at_rest
+from tauledger.network.merge import joined_nodes as joined_nodes
+from tauledger.network.merge import passes, renamed
 from tauledger.network.midband import MidBand as MidBand
 from tauledger.network.midband import find_midband as find_midband
 from tauledger.network.reactances import Reactances, reactances, stamped
@@ -53,6 +56,11 @@ class Bands(Struct, frozen=True):
     repaired: tuple[str, ...] = ()
 
     @property
+    def aids(self) -> frozenset[str]:
+        """Names of the measuring aids: open or short in both networks, and in no table."""
+        return frozenset(self.midband.aids)
+
+    @property
     def gain_setting(self) -> frozenset[str]:
         """Names of the capacitors that set the mid-band gain."""
         return frozenset(name for name, kind in self.class_of.items() if kind == "gain")
@@ -70,12 +78,15 @@ def classify(network: Network, midband: MidBand) -> Bands:
     itself in place: for one resistance across it r = x/√(1 + x²) with x = ωRC, and capacitors in parallel share one r.
     The limit is taken in the network of those capacitors that a first round with all of them found short; a capacitor
     that larger shorts bridge by way of a driven source counts for itself, r = |jωC·Z(jω)|.
+    Measuring aids are open or short by what they are, and a capacitor across one of them is open.
     Coupled inductors are neither: they stay as they are, class "tuned".
     An inductor is open where the dual with the admittance of its branch exceeds 0.707. r > 1.3 is resonance: tuned.
     Before that, a capacitor on which the mid-band gain depends is of class "gain" (gain_setting.py).
     The gain of the merged network is then compared with |H(f_mid)|; while it is more than 2 % off, the open capacitor
     is shorted (beside others of class "gain": or taken as one) that halves the error at least.
+    Lines are taken as at DC.
     """
+    network = at_rest(network)
     ratio = _ratios(network, midband.frequency_hz)
     setting = gain_setting(network, midband)
     coupled = _coupled(network)
@@ -87,6 +98,8 @@ def classify(network: Network, midband: MidBand) -> Bands:
             class_of[part.name] = "tuned"
         elif part.kind in ("capacitance", "inductance"):
             class_of[part.name] = "gain" if part.name in setting else _class(part, ratio[part.name])
+    if midband.aids:
+        class_of |= _beside_aids(network, midband.aids)
     error = _gain_error(network, midband, class_of)
     repaired: list[str] = []
     while midband.plateau and error > GAIN_TOLERANCE:
@@ -101,7 +114,7 @@ def classify(network: Network, midband: MidBand) -> Bands:
         repaired.append(best[0])
     merged = merged_nodes(network, class_of)
     try:
-        upper, lower = upper_network(network, class_of, merged), lower_network(network, class_of)
+        upper, lower = upper_network(network, class_of, merged), lower_network(network, class_of, midband.aids)
     except NetworkError:
         upper, lower, error = network, network, float("inf")
         merged = {node: node for node in merged}
@@ -123,22 +136,28 @@ def upper_network(network: Network, class_of: Mapping[str, BandClass], merged: M
 
     Raises NetworkError where nothing is left at the output.
     """
-    kept = [part for part in network.parts if not _passes(network, part) or class_of.get(part.name) != "open"]
-    return _renamed(network, kept, merged)
+    kept = [part for part in network.parts if not passes(network, part) or class_of.get(part.name) != "open"]
+    return renamed(network, kept, merged)
 
 
-def lower_network(network: Network, class_of: Mapping[str, BandClass]) -> Network:
-    """Take out the open capacitors and merge the short inductors.
+def lower_network(network: Network, class_of: Mapping[str, BandClass], aids: Collection[str] = ()) -> Network:
+    """Take out the open capacitors and merge the short inductors; measuring aids are as ideal here as in the upper one.
 
     Raises NetworkError where nothing is left at the output.
     """
     opens = {name for name, kind in class_of.items() if kind == "open"}
-    return _renamed(network, _without_charge(network.parts, opens), lower_nodes(network, class_of))
+    kept = [part for part in network.parts if part.kind != "inductance" or part.name not in aids]
+    return renamed(network, _without_charge(kept, opens), lower_nodes(network, class_of, aids))
 
 
-def lower_nodes(network: Network, class_of: Mapping[str, BandClass]) -> dict[str, str]:
-    """Give for every node the one that stands for all that short inductors join with it."""
-    joining = [part for part in network.parts if _passes(network, part) and class_of[part.name] == "short"]
+def lower_nodes(network: Network, class_of: Mapping[str, BandClass], aids: Collection[str] = ()) -> dict[str, str]:
+    """Give for every node the one that stands for all that short inductors and measuring capacitors join with it."""
+    joining = [
+        part
+        for part in network.parts
+        if (passes(network, part) and class_of.get(part.name) == "short")
+        or (part.kind == "capacitance" and part.name in aids)
+    ]
     return joined_nodes(network, joining)
 
 
@@ -149,8 +168,8 @@ def midband_network(network: Network, class_of: Mapping[str, BandClass]) -> Netw
     Raises NetworkError where nothing is left at the output.
     """
     uncharged = _without_charge(network.parts, {name for name, kind in class_of.items() if kind != "gain"})
-    kept = [part for part in uncharged if not _passes(network, part) or class_of[part.name] != "open"]
-    return _renamed(network, kept, midband_nodes(network, class_of))
+    kept = [part for part in uncharged if not passes(network, part) or class_of[part.name] != "open"]
+    return renamed(network, kept, midband_nodes(network, class_of))
 
 
 def midband_nodes(network: Network, class_of: Mapping[str, BandClass]) -> dict[str, str]:
@@ -176,6 +195,18 @@ def merged_nodes(network: Network, class_of: Mapping[str, BandClass]) -> dict[st
     return joined_nodes(network, shorts)
 
 
+def _beside_aids(network: Network, aids: Collection[str]) -> dict[str, BandClass]:
+    """Give the class of the measuring aids, and of the capacitors whose ends they join."""
+    tied = lower_nodes(network, {}, aids)
+    found: dict[str, BandClass] = {}
+    for part in network.parts:
+        if part.name in aids:
+            found[part.name] = "open" if part.kind == "inductance" else "short"
+        elif part.kind == "capacitance" and tied[part.nodes[0]] == tied[part.nodes[1]]:
+            found[part.name] = "open"
+    return found
+
+
 def _class(part: Part, ratio: float) -> BandClass:
     if ratio > TUNED_ABOVE:
         return "tuned"
@@ -187,13 +218,7 @@ def _wire(network: Network, part: Part, class_of: Mapping[str, BandClass]) -> bo
     """Whether this part is a wire at mid-band; a tuned inductor counts as one."""
     if part.kind == "capacitance":
         return class_of[part.name] == "short"
-    return _passes(network, part) and class_of[part.name] != "open"
-
-
-def _passes(network: Network, part: Part) -> bool:
-    """Whether this is an inductor that may be taken out: not the one whose current is the output."""
-    through = fold(network.port.through) if network.port.kind == "current" else None
-    return part.kind == "inductance" and fold(part.owner) != through
+    return passes(network, part) and class_of[part.name] != "open"
 
 
 def _ratios(network: Network, frequency_hz: float) -> dict[str, float]:
@@ -289,57 +314,3 @@ def _gain_error(network: Network, midband: MidBand, class_of: Mapping[str, BandC
     except NetworkError:
         return float("inf")
     return float(abs(gain / abs(midband.gain) - 1.0))
-
-
-def joined_nodes(network: Network, joining: Iterable[Part]) -> dict[str, str]:
-    """Give for every node, ground included, the node that stands for all that these two-terminal parts join with it."""
-    nodes = [GROUND, *network.unknowns[: network.n_nodes]]
-    root = {node: node for node in nodes}
-
-    def find(node: str) -> str:
-        while root[node] != node:
-            root[node] = root[root[node]]
-            node = root[node]
-        return node
-
-    rank = {node: position for position, node in enumerate([GROUND, network.port.plus, network.port.minus, *nodes])}
-    rank |= {network.port.minus: 2, network.port.plus: 1, GROUND: 0}
-    for part in joining:
-        a, b = sorted((find(part.nodes[0]), find(part.nodes[1])), key=lambda node: rank[node])
-        root[b] = a
-    return {node: find(node) for node in nodes}
-
-
-def _renamed(network: Network, parts: list[Part], merged: Mapping[str, str]) -> Network:
-    """Rename nodes; leave out what has become a loop or has no value, but no driven source and no output branch."""
-    kept = []
-    for part in parts:
-        nodes = tuple(merged[node] for node in part.nodes)
-        if not _is_empty(network, part, nodes):
-            kept.append(replace(part, nodes=nodes))
-    kept = list(without_loose_ends(kept))
-    port = network.port
-    if port.kind == "voltage":
-        port = Port(merged[port.plus], merged[port.minus])
-    sources = ("voltage source", "current source")
-    drive = {
-        p.owner: complex(network.amplitude(p))
-        for p in kept
-        if p.kind in sources and fold(p.owner) in network.amplitudes
-    }
-    return assemble(tuple(kept), port, {fold(name): value for name, value in drive.items()})
-
-
-def _is_empty(network: Network, part: Part, nodes: tuple[str, ...]) -> bool:
-    if part.kind in ("capacitance", "transcapacitance") and part.value == 0.0:
-        return True
-    if part.kind in ("mutual inductance", "block"):
-        return False
-    # a voltage gain without control still forces 0 V
-    loop = nodes[0] == nodes[1] or (len(nodes) == 4 and nodes[2] == nodes[3] and part.kind != "voltage gain")
-    if not loop:
-        return False
-    if part.kind == "voltage source":
-        carries_output = network.port.kind == "current" and fold(network.port.through) == fold(part.owner)
-        return network.amplitude(part) == 0.0 and not carries_output
-    return not (part.kind == "inductance" and not _passes(network, part))

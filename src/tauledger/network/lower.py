@@ -72,8 +72,12 @@ def short_constants(bands: Bands) -> ShortConstants:
     """
     network, s = bands.network, bands.s_mid
     gain = inverse(midband_network(bands.network, bands.class_of), s).gain
-    groups = parallel(network, [part for part in network.parts if _is_short(bands, part)])
-    groups += [(part,) for part in network.parts if part.kind == "inductance" and bands.class_of[part.name] == "open"]
+    groups = coupling_groups(bands)
+    groups += [
+        (part,)
+        for part in network.parts
+        if part.kind == "inductance" and bands.class_of[part.name] == "open" and part.name not in bands.aids
+    ]
     facts = [_alone(network, bands.class_of, group, gain, s) for group in groups]
     setting = parallel(network, [part for part in network.parts if part.name in bands.gain_setting])
     if setting:
@@ -101,8 +105,17 @@ def short_constants(bands: Bands) -> ShortConstants:
     return ShortConstants(rows, float(sum(edges)), float(0.0 - np.sum(poles).real / (2.0 * np.pi)))
 
 
-def _is_short(bands: Bands, part: Part) -> bool:
-    return part.kind == "capacitance" and part.value != 0.0 and bands.class_of[part.name] == "short"
+def coupling_groups(bands: Bands) -> list[tuple[Part, ...]]:
+    """Give the capacitors that are short at mid-band, parallel ones taken together; measuring aids are none of them."""
+    shorts = [
+        part
+        for part in bands.network.parts
+        if part.kind == "capacitance"
+        and part.value != 0.0
+        and bands.class_of[part.name] == "short"
+        and part.name not in bands.aids
+    ]
+    return parallel(bands.network, shorts)
 
 
 def parallel(network: Network, shorts: list[Part]) -> list[tuple[Part, ...]]:
@@ -139,7 +152,7 @@ def _setting(bands: Bands, groups: list[tuple[Part, ...]], gain: complex) -> lis
     Infinite resistance and edge 0 where they hold nothing of those poles.
     """
     lower, s = bands.lower, bands.s_mid
-    tied = lower_nodes(bands.network, bands.class_of)
+    tied = lower_nodes(bands.network, bands.class_of, bands.aids)
     z = impedance_below(lower, s)
     found = []
     for group in groups:

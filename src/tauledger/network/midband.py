@@ -4,9 +4,12 @@ from __future__ import annotations
 
 import numpy as np
 from msgspec import Struct
+from msgspec.structs import replace
 
 from tauledger.errors import InputError, NetworkError
+from tauledger.network.aids import MeasuringAids, flattest_hz, measuring_aids
 from tauledger.network.assemble import Network
+from tauledger.network.lines import lumped
 from tauledger.network.solve import Complex, Real, log_slope, on_axis, response, solve
 from tauledger.network.spectrum import frequency_grid, pole_frequencies, zero_frequencies
 
@@ -29,12 +32,21 @@ class MidBand(Struct, frozen=True):
 
     frequency_hz: 0 where the plateau reaches DC. from_hz, to_hz: the plateau's extent, 0 at DC, inf without upper
     limit, both None where there is no plateau. gain: complex H there.
+    aids: names of measuring aids (aids.py), which act below floor_hz alone; nothing below that belongs to the
+    amplifier. A plateau that reaches down to them reaches DC: from_hz is 0 and frequency_hz is floor_hz.
     """
 
     frequency_hz: float
     from_hz: float | None
     to_hz: float | None
     gain: complex
+    aids: tuple[str, ...] = ()
+    floor_hz: float = 0.0
+
+    @property
+    def reaches_dc(self) -> bool:
+        """Whether the reference is where direct current is, or where it would be without measuring aids."""
+        return self.frequency_hz <= self.floor_hz
 
     @property
     def plateau(self) -> bool:
@@ -43,7 +55,10 @@ class MidBand(Struct, frozen=True):
 
 
 class _Scan(Struct, frozen=True):
-    """|H| and its exact logarithmic slope over frequency: each (k,). resonant: a sharp pair makes the highest gain."""
+    """|H| and its exact logarithmic slope over frequency: each (k,).
+
+    resonant: a sharp pair makes the highest gain, or a line may make it.
+    """
 
     frequency_hz: Real
     magnitude: Real
@@ -76,10 +91,26 @@ def find_midband(network: Network, *, at_hz: float | None = None) -> MidBand:
     DC, else the stationary point of |H| nearest its middle, so that it does not move to first order (where |H| has none
     but a peak at the plateau's end, the flattest point); without a plateau it is the maximum of |H|.
     A plateau more than 20 dB below the highest gain (40 dB where a resonance makes that) is what leaks past the
-    amplifier, no mid-band.
+    amplifier, no mid-band. Measuring aids are looked past.
     Raises InputError where at_hz is negative or beyond 1 THz, and where no signal passes there or anywhere;
     NetworkError where the network has no unique solution.
     """
+    aids = measuring_aids(network)
+    if aids is None or (at_hz is not None and 0.0 < at_hz < aids.lowest_hz / MARGIN):
+        return _find(network, at_hz)
+    found = _find(aids.ideal, at_hz)
+    return _beside(network, aids, found)
+
+
+def _beside(network: Network, aids: MeasuringAids, found: MidBand) -> MidBand:
+    """Give the reference in the network with its aids, found in the one where they are ideal."""
+    floor_hz = flattest_hz(network, aids) if found.frequency_hz == 0.0 else aids.lowest_hz / MARGIN
+    at_hz = max(found.frequency_hz, floor_hz)
+    gain = complex(response(network, np.array([at_hz]))[0])
+    return replace(found, frequency_hz=at_hz, gain=gain, aids=aids.names, floor_hz=floor_hz)
+
+
+def _find(network: Network, at_hz: float | None) -> MidBand:
     scan = _scan(network)
     plateaus = _plateaus(network, scan)
     if at_hz is not None:
@@ -111,16 +142,16 @@ def frequency_range(poles: Complex, zeros: Complex) -> tuple[float, float] | Non
 
 
 def _scan(network: Network) -> _Scan:
-    poles = pole_frequencies(network)
+    rational = lumped(network)
+    poles = pole_frequencies(rational)
     _require_signal(network, poles)
-    zeros = zero_frequencies(network, poles)
+    zeros = zero_frequencies(rational, poles)
     low, high = frequency_range(poles, zeros) or CONSTANT_RANGE_HZ
     frequency = frequency_grid(low, high, POINTS_PER_DECADE, np.concatenate([poles, zeros]))
     solution = solve(network, on_axis(frequency))
     magnitude = np.abs(solution.response)
-    return _Scan(
-        frequency, magnitude, log_slope(network, solution).real, _resonant(poles, frequency[magnitude.argmax()])
-    )
+    resonant = bool(network.lines) or _resonant(poles, frequency[magnitude.argmax()])
+    return _Scan(frequency, magnitude, log_slope(network, solution).real, resonant)
 
 
 def _resonant(poles: Complex, peak_hz: float) -> bool:

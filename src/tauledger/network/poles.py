@@ -18,7 +18,7 @@ from tauledger.errors import NetworkError
 from tauledger.network.admittance import all_pass
 from tauledger.network.assemble import Network
 from tauledger.network.reactances import by_part, reactances
-from tauledger.network.solve import Complex, admittance
+from tauledger.network.solve import Complex, admittance, log_slope, solve
 from tauledger.network.spectrum import pole_frequencies, zero_frequencies
 
 CANCEL_WITHIN = 0.02
@@ -66,14 +66,17 @@ class PoleZeroMap(Struct, frozen=True):
     stable: bool
 
 
-def find_poles(network: Network) -> PoleZeroMap:
+def find_poles(network: Network, *, floor_hz: float = 0.0) -> PoleZeroMap:
     """Find all finite poles and zeros with owners and cancelled pairs; a delay is taken as an all-pass.
 
+    floor_hz: leave out those below it, which measuring aids make; what H has there as its slope is at the origin.
     Raises NetworkError where the network has no unique solution.
     """
     network = all_pass(network)
     p = pole_frequencies(network)
     z = zero_frequencies(network, p)
+    if floor_hz:
+        p, z = _above(network, p, z, floor_hz)
     pole_cancelled, zero_cancelled = cancelled_pairs(p, z)
     owners = pole_owners(network, p)
     poles = tuple(
@@ -86,6 +89,16 @@ def find_poles(network: Network) -> PoleZeroMap:
         if complex(z[k]).imag >= 0.0 or not paired[k]
     )
     return PoleZeroMap(poles, zeros, bool(np.all(p.real <= 0.0)))
+
+
+def _above(network: Network, p: Complex, z: Complex, floor_hz: float) -> tuple[Complex, Complex]:
+    floor = 2.0 * np.pi * floor_hz
+    order = round(float(log_slope(network, solve(network, np.array([1j * floor])))[0].real))
+    origin = np.zeros(abs(order), dtype=complex)
+    # what grows without ringing is an operating point that does not hold, aid or no aid
+    latched = (p.imag == 0.0) & (p.real > 0.0)
+    p, z = p[(np.abs(p) > floor) | latched], z[np.abs(z) > floor]
+    return (p, np.concatenate([origin, z])) if order > 0 else (np.concatenate([origin, p]), z)
 
 
 def _paired(roots: Complex) -> NDArray[np.bool_]:

@@ -12,7 +12,7 @@ import numpy as np
 from msgspec import Struct
 
 from tauledger.devices.parts import Part
-from tauledger.network.assemble import Network, Triplets, incidence
+from tauledger.network.assemble import Network, Triplets, has_branch, incidence
 from tauledger.network.solve import Complex, Real, Solution
 
 REACTIVE = ("capacitance", "inductance", "transcapacitance", "mutual inductance", "block")
@@ -58,6 +58,9 @@ def reactances(network: Network) -> Reactances:
         elif part.kind == "inductance":
             row = network.branch(part.owner)
             out[row, k], control[row, k] = 1.0, -1.0
+        elif has_branch(part):
+            out[network.branch(part.name), k] = 1.0
+            control[:, k] = incidence(network, *part.nodes)
         elif part.kind == "mutual inductance":
             first, second = (network.branch(owner) for owner in part.references)
             out[first, k], control[second, k] = 1.0, -1.0

@@ -20,7 +20,7 @@ from tauledger.network.assemble import Network, assemble, without_loose_ends
 from tauledger.network.edges import HALF_POWER, Edges, at_same_frequency, crossing, find_edges
 from tauledger.network.midband import MidBand
 from tauledger.network.reactances import Reactances, reactances
-from tauledger.network.solve import DENSE_LIMIT, Complex, Real, admittance, on_axis
+from tauledger.network.solve import DENSE_LIMIT, MOST_ENTRIES, Complex, Real, admittance, on_axis
 
 SCANNED_BEYOND = 10.0
 
@@ -67,18 +67,24 @@ def edge_frequencies(network: Network, midband: MidBand) -> EdgeFrequencies:
 
 
 def each_scaled(network: Network, midband: MidBand, edges: Edges, factor: float) -> dict[str, EdgeFrequencies]:
-    """Give the band edges with one reactive part at a time multiplied by `factor`, by part name.
+    """Give the band edges with one reactive part or line at a time multiplied by `factor`, by part name.
 
     edges: those of the unchanged network. The scan reaches ten times beyond them; where an edge is not found there,
     that part's network is searched in full.
     Raises NetworkError where a network has no unique solution.
     """
     terms = reactances(network)
-    if not len(edges.frequency_hz) or not terms.parts:
-        return {name: EdgeFrequencies(None, None) for name in terms.names}
+    if not len(edges.frequency_hz):
+        names = (*terms.names, *(line.name for line in network.lines))
+        return {name: EdgeFrequencies(None, None) for name in names}
+    # a line is no change of rank one either
+    result = {
+        line.name: edge_frequencies(scaled(network, {line.name: factor}), midband) for line in network.lines
+    }
+    if not terms.parts:
+        return result
     frequency = _window(midband, edges)
     gain = np.abs(_each_response(network, terms, np.concatenate([[midband.frequency_hz], frequency]), factor))
-    result = {}
     for k, part in enumerate(terms.parts):
         if part.kind == "block":
             # several terms at once are no change of rank one
@@ -104,7 +110,7 @@ def _window(midband: MidBand, edges: Edges) -> Real:
     low, high = edges.frequency_hz[0], edges.frequency_hz[-1]
     if edges.f_low is not None and edges.f_low.hz is not None:
         low = edges.f_low.hz / SCANNED_BEYOND
-    elif midband.frequency_hz == 0.0 and edges.f_high is not None and edges.f_high.hz is not None:
+    elif midband.reaches_dc and edges.f_high is not None and edges.f_high.hz is not None:
         low = edges.f_high.hz / SCANNED_BEYOND**3
     if edges.f_high is not None and edges.f_high.hz is not None:
         high = edges.f_high.hz * SCANNED_BEYOND
@@ -116,7 +122,7 @@ def _each_response(network: Network, terms: Reactances, frequency_hz: Real, fact
     """Give H (k, m) at every frequency with each of the m parts scaled alone."""
     s = on_axis(frequency_hz)
     right = np.concatenate([network.drive[:, None], terms.out.astype(complex)], axis=1)
-    batch = len(s) if network.size <= DENSE_LIMIT else 1
+    batch = max(1, MOST_ENTRIES // (network.size * right.shape[1])) if network.size <= DENSE_LIMIT else 1
     rows = []
     for first in range(0, len(s), batch):
         at = s[first : first + batch]

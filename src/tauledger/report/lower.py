@@ -13,7 +13,9 @@ _ROWS = 6
 def lower_edge(review: Review, *, verbose: bool = False) -> Section:
     """Give R, edge, zero, share and what 10 % less gives, for every capacitor in the path that is no open."""
     short = [
-        part for part in review.parts if part.klass in ("short", "gain") and part.kind in ("capacitance", "inductance")
+        part
+        for part in review.parts
+        if part.klass in ("short", "gain") and part.kind in ("capacitance", "inductance") and not part.aid
     ]
     with_edge = [part for part in short if part.in_path and part.edge_hz is not None]
     rows = in_parallel(sorted(with_edge, key=lambda part: (-(part.edge_hz or 0.0), -part.value)))

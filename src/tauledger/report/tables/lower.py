@@ -69,7 +69,7 @@ def lower_edge(review: Review) -> Grid:
 def aside(review: Review) -> str:
     """Say which capacitors are left out of the table and why; empty where none is."""
     told = []
-    short = [part for part in review.parts if part.klass == "short" and not part.in_path]
+    short = [part for part in review.parts if part.klass == "short" and not part.in_path and not part.aid]
     if short and review.budget.lower is not None:
         told.append(f"{_named(short)}: not in the signal path.")
     gain = [part for part in review.parts if part.klass == "gain"]
