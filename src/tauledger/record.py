@@ -788,6 +788,110 @@ class PeakFacts(Struct, frozen=True):
     elements: tuple[PeakElement, ...] = ()
 
 
+class PhaseRow(Struct, frozen=True):
+    """What one pole or zero (of a complex pair the one above the axis, standing for both) uses of the phase at f_u.
+
+    name: by the formula that it belongs to ("dominant pole"), else "pole", "zero", "pole pair". real_hz, imag_hz: s/2π,
+    exact. used_deg: exact; negative where it gives phase. hand_*: by hand_formula with the operands in hand_values,
+    hand_hz of a pair its f0, of a zero negative in the left half plane; None where no formula fits. difference:
+    |hand_hz|/|exact| − 1.
+    """
+
+    name: str
+    kind: str
+    real_hz: float
+    imag_hz: float
+    used_deg: float
+    hand_formula: str = ""
+    hand_values: str = ""
+    hand_hz: float | None = None
+    hand_deg: float | None = None
+    difference: float | None = None
+
+
+class UnityStep(Struct, frozen=True):
+    """f_u or phase margin by hand beside exact: figure ("f_u", "phase margin"), unit Hz or °, why they differ."""
+
+    figure: str
+    unit: str
+    formula: str
+    values: str
+    hand: float
+    exact: float
+    why: str
+
+
+class PhaseBudget(Struct, frozen=True):
+    """The phase used up at f_u: rows, others and rest add to 180° − margin_deg, exact.
+
+    rows: the poles and zeros that are seen there, the lowest first. others_deg: all others together, so many
+    roots; rest_deg: what delays do beside poles and zeros. stage: the compensated stage in words, empty without one.
+    """
+
+    at_hz: float
+    margin_deg: float
+    rows: tuple[PhaseRow, ...]
+    others: int
+    others_deg: float
+    rest_deg: float
+    stage: str
+    by_hand: tuple[UnityStep, ...]
+
+
+class WantChange(Struct, frozen=True):
+    """One change of a remedy. name: part; new: it is put in, in series with `beside`. before: None where it is new.
+
+    value: what it must be, in `unit`, exact. first_order: what the slope alone would say, None where it leads nowhere.
+    """
+
+    name: str
+    unit: str
+    before: float | None
+    value: float
+    first_order: float | None = None
+    new: bool = False
+    beside: str = ""
+
+
+class Remedy(Struct, frozen=True):
+    """One way to a wanted figure, computed again with the operating point held.
+
+    reaches: the wanted figure is met. figure: what comes of it, exact, and simulated_figure by ngspice with the changed
+    circuit, None where that was not run. f_unity_hz, phase_margin_deg, gain_margin_db, f_high_hz, f_low_hz, gain_db:
+    the others, exact. moves_bias: a change that moves the operating point too. says: what must be known beside it.
+    """
+
+    changes: tuple[WantChange, ...]
+    reaches: bool
+    figure: float | None
+    simulated_figure: float | None
+    f_unity_hz: float | None
+    phase_margin_deg: float | None
+    gain_margin_db: float | None
+    f_high_hz: float | None
+    f_low_hz: float | None
+    gain_db: float
+    moves_bias: bool = False
+    says: str = ""
+
+
+class WantFacts(Struct, frozen=True):
+    """A figure that was wanted (margin, gain_margin, f_u, f_h, f_l) in `unit` (°, dB, Hz) and what it takes.
+
+    now: as the circuit is, None where it has no such figure. met: nothing is to be done; slack: by how much, in `unit`.
+    remedies: what reaches it first.
+    """
+
+    quantity: str
+    unit: str
+    wanted: float
+    now: float | None
+    met: bool
+    slack: float | None
+    remedies: tuple[Remedy, ...] = ()
+    says: str = ""
+
+
 class Review(Struct, frozen=True):
     """One review of one netlist under one condition."""
 
@@ -829,6 +933,8 @@ class Review(Struct, frozen=True):
     f_unity: UnityFacts | None = None
     at: tuple[AtFacts, ...] = ()
     peaking: tuple[PeakFacts, ...] = ()
+    phase_budget: PhaseBudget | None = None
+    wants: tuple[WantFacts, ...] = ()
 
 
 DEVICES_SCHEMA = "tauledger.devices/1"

@@ -7,6 +7,7 @@ from __future__ import annotations
 
 from msgspec import Struct
 
+from tauledger.hand.compensation import FORMULAS
 from tauledger.hand.rules import RULES
 
 GRAY = "Gray, Hurst, Lewis and Meyer, Analysis and Design of Analog Integrated Circuits, 5th ed., 2009"
@@ -135,4 +136,5 @@ METHODS: tuple[Entry, ...] = (
 def entries() -> tuple[Entry, ...]:
     """Give every rule and method, in the order in which a reader needs them."""
     rules = tuple(Entry("looking in", rule.name, rule.formula, rule.valid, rule.source, rule.short) for rule in RULES)
-    return (*rules, *LOOPS, *CAPACITANCES, *METHODS)
+    compensation = tuple(Entry("unity gain", f.name, f.written, f.valid, f.source) for f in FORMULAS)
+    return (*rules, *LOOPS, *CAPACITANCES, *METHODS, *compensation)

@@ -1,0 +1,244 @@
+"""The compensated stage: an inverting stage with a capacitance, or that and a resistor, from its output to its input.
+
+It is found among transistors, resistors and capacitances, never by a name; an inner node of a device is taken with its
+outer one, as on paper. Of several the one whose input has the
+longest time constant R1·(C1 + C_c·(1 + A2)) is taken: it makes the dominant pole.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterator, Mapping
+
+from msgspec import Struct
+
+from tauledger.circuit import GROUND
+from tauledger.hand.compensation import dominant_pole_hz
+from tauledger.hand.elements import Capacitor, Cell, Resistor
+from tauledger.hand.equivalent import EquivalentCircuit
+from tauledger.hand.nodes import groups, node_name
+
+# A stage through which less of the signal goes stands beside the path; inside a loop it is 1/(1 + T) of it.
+IN_PATH = 1e-4
+# Below this the load makes the dominant pole as much as the input does, and no pole splits.
+INVERTS = -5.0
+# Capacitance to elsewhere at the node between R_z and C_c, against C_c: more of it and they are not in series.
+STRAY = 0.1
+AS_ONE_DEVICE = 0.01
+
+
+class Places(Struct, frozen=True):
+    """Hand nodes as paper sees them: `at` gives for each the one that stands for it and its devices' inner nodes.
+
+    members: the hand nodes of each.
+    """
+
+    at: Mapping[str, str]
+    members: Mapping[str, tuple[str, ...]]
+
+    def of(self, node: str) -> str:
+        """Give the place of a hand node, ground included."""
+        return self.at.get(node, node)
+
+    def ends(self, element: Capacitor | Resistor) -> frozenset[str]:
+        """Give the one or two places between which an element stands."""
+        return frozenset((self.of(element.a), self.of(element.b)))
+
+
+class CompensatedStage(Struct, frozen=True):
+    """One inverting stage with its compensation, by hand values.
+
+    input, output: places, and input_name, output_name as the netlist calls them. owners: transistors of the stage, the
+    first at the input. gm_2: S, from input to output. a_2: its gain by size.
+    capacitors: names of the parts that are C_c, the largest first; c_c: F in series with r_z. c_direct: F straight
+    across beside a branch with r_z, else 0. r_z: ohm, 0 without; resistor: its name.
+    r_1: ohm at the input. c_1, c_l: F from input and output to elsewhere. gm_1: S that feeds the input; first: the
+    transistor whose gm that is, empty where it is no single one's. to_output: gain by size from the stage's output on.
+    """
+
+    input: str
+    output: str
+    input_name: str
+    output_name: str
+    owners: tuple[str, ...]
+    gm_2: float
+    a_2: float
+    capacitors: tuple[str, ...]
+    c_c: float
+    c_direct: float
+    r_z: float
+    resistor: str
+    r_1: float
+    c_1: float
+    c_l: float
+    gm_1: float
+    first: str
+    to_output: float
+
+    @property
+    def across(self) -> float:
+        """All that bridges the stage, F."""
+        return self.c_c + self.c_direct
+
+
+class _Branch(Struct, frozen=True):
+    capacitors: tuple[Capacitor, ...]
+    resistor: Resistor | None = None
+
+    @property
+    def farad(self) -> float:
+        return sum(capacitor.farad for capacitor in self.capacitors)
+
+
+class _Inverting(Struct, frozen=True):
+    """Hand nodes from which and to which the stage inverts, and its transistors."""
+
+    start: str
+    end: str
+    owners: tuple[str, ...]
+
+
+def find_compensated_stage(
+    circuit: EquivalentCircuit, resistance_ohm: Mapping[str, float], response: complex
+) -> CompensatedStage | None:
+    """Find the stage that makes the dominant pole; None where no inverting stage of the signal path is bridged.
+
+    circuit: the hand circuit, of a balanced one its half. resistance_ohm: by hand, by hand node; the exact one is taken
+    where there is none. response: of the whole network, whose output may lie beyond the stage's.
+    """
+    places = find_places(circuit)
+    found = [
+        stage
+        for inverting in _inverting(circuit, places)
+        if (stage := _stage(circuit, places, inverting, resistance_ohm, response)) is not None
+    ]
+    return min(found, key=dominant_hz, default=None)
+
+
+def dominant_hz(stage: CompensatedStage) -> float:
+    """Give the stage's dominant pole by hand in Hz."""
+    return dominant_pole_hz(stage.r_1, stage.c_1, stage.across, stage.a_2)
+
+
+def find_places(circuit: EquivalentCircuit) -> Places:
+    """Take every inner node of a device with its outer one."""
+    rows = groups(circuit)
+    return Places({node: row.nodes[0] for row in rows for node in row.nodes}, {row.nodes[0]: row.nodes for row in rows})
+
+
+def farads_at(circuit: EquivalentCircuit, places: Places, place: str, without: frozenset[str] = frozenset()) -> float:
+    """Give the capacitance in F from a place to all others, taken as standing still; a mirror image counts twice."""
+    return sum(
+        capacitor.farad * (2.0 if capacitor.mirrored else 1.0)
+        for capacitor in circuit.capacitors
+        if place in (ends := places.ends(capacitor)) and len(ends) > 1 and capacitor.part not in without
+    )
+
+
+def _inverting(circuit: EquivalentCircuit, places: Places) -> tuple[_Inverting, ...]:
+    """Give every inverting stage: one transistor or several side by side, or a follower and the one that it drives."""
+    found: dict[tuple[str, str], _Inverting] = {}
+    for path in _paths(circuit.cells, places):
+        start, end = path[0].control, path[-1].output
+        ends = places.of(start), places.of(end)
+        if ends[0] == ends[1] or GROUND in ends or circuit.gain(start, end) >= INVERTS:
+            continue
+        known = found.get(ends, _Inverting(start, end, ()))
+        owners = tuple(dict.fromkeys((*known.owners, *(cell.owner for cell in path))))
+        found[ends] = _Inverting(known.start, known.end, owners)
+    return tuple(found.values())
+
+
+def _paths(cells: tuple[Cell, ...], places: Places) -> Iterator[tuple[Cell, ...]]:
+    for cell in cells:
+        yield (cell,)
+    for follower in cells:
+        for cell in cells:
+            if cell is not follower and places.of(follower.common) == places.of(cell.control) != GROUND:
+                yield follower, cell
+
+
+def _stage(
+    circuit: EquivalentCircuit,
+    places: Places,
+    inverting: _Inverting,
+    resistance_ohm: Mapping[str, float],
+    response: complex,
+) -> CompensatedStage | None:
+    start, end = inverting.start, inverting.end
+    here, there = places.of(start), places.of(end)
+    across = _Branch(tuple(c for c in circuit.capacitors if places.ends(c) == {here, there}))
+    through = _series(circuit, places, here, there)
+    branch = through if through is not None and through.farad > across.farad else across
+    if not branch.farad:
+        return None
+    i, k = circuit.row[start], circuit.row[end]
+    # a stage inverts with a gain, so that its input is held by no source; in a loop resistances may turn negative
+    z_in, gain = circuit.z(start, start), circuit.gain(start, end)
+    z_out = circuit.z(end, end) - circuit.z(start, end) * circuit.z(end, start) / z_in
+    if z_in <= 0.0 or z_out <= 0.0:
+        return None
+    transfer = -gain / z_out
+    passed = transfer * circuit.voltage[i] * circuit.adjoint[k]
+    if abs(passed) < IN_PATH * abs(circuit.response):
+        return None
+    named = frozenset(c.part for one in (across, branch) for c in one.capacitors)
+    norton = float(abs(circuit.voltage[i])) / abs(z_in)
+    first = _feeding(circuit, places, here, norton)
+    reached = float(abs(circuit.voltage[k]))
+    series = branch.resistor
+    return CompensatedStage(
+        input=here,
+        output=there,
+        input_name=node_name(circuit, here),
+        output_name=node_name(circuit, there),
+        owners=inverting.owners,
+        gm_2=_gm_of(circuit, inverting.owners, transfer),
+        a_2=-gain,
+        capacitors=tuple(c.part for c in sorted(branch.capacitors, key=lambda c: -c.farad)),
+        c_c=branch.farad,
+        c_direct=across.farad if series is not None else 0.0,
+        r_z=series.ohm if series is not None else 0.0,
+        resistor=series.name if series is not None else "",
+        r_1=resistance_ohm.get(start, abs(z_in)),
+        c_1=farads_at(circuit, places, here, named),
+        c_l=farads_at(circuit, places, there, named),
+        gm_1=norton if first is None else abs(first.gm),
+        first="" if first is None else first.owner,
+        to_output=abs(response) / reached if reached else math.nan,
+    )
+
+
+def _series(circuit: EquivalentCircuit, places: Places, here: str, there: str) -> _Branch | None:
+    """Find a resistor and capacitors in series between two places; nothing else of note may hang in between."""
+    for near, far in ((here, there), (there, here)):
+        for resistor in circuit.resistors:
+            ends = places.ends(resistor)
+            if near not in ends or len(ends) == 1:
+                continue
+            (between,) = ends - {near}
+            touching = circuit.resistors_at.get(between, ())
+            if between in (GROUND, far) or circuit.cells_at.get(between) or len(touching) > 1:
+                continue
+            capacitors = tuple(c for c in circuit.capacitors if places.ends(c) == {between, far})
+            farad = sum(c.farad for c in capacitors)
+            strays = farads_at(circuit, places, between, frozenset(c.part for c in capacitors))
+            if farad and strays <= STRAY * farad:
+                return _Branch(capacitors, resistor)
+    return None
+
+
+def _gm_of(circuit: EquivalentCircuit, owners: tuple[str, ...], transfer: float) -> float:
+    """Give gm of the stage as paper has it: that of its transistors where this is all, else what it comes to."""
+    alone = sum(cell.gm for cell in circuit.cells if cell.owner in owners)
+    return alone if abs(alone - transfer) <= AS_ONE_DEVICE * abs(transfer) else transfer
+
+
+def _feeding(circuit: EquivalentCircuit, places: Places, place: str, norton: float) -> Cell | None:
+    """Give the transistor whose current goes to this place and whose gm is what the drive makes of it there."""
+    fits = [
+        cell
+        for cell in circuit.cells
+        if places.of(cell.output) == place and abs(abs(cell.gm) - norton) <= AS_ONE_DEVICE * norton
+    ]
+    return fits[0] if fits else None
