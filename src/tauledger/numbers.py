@@ -135,6 +135,11 @@ def recompute(numbers: Numbers, scale: Mapping[str, float]) -> EdgeFrequencies:
 def _sweep_grid(numbers: Numbers, asked: tuple[float, float] | None) -> NDArray[np.float64]:
     """Lay out the sweep: a decade beyond all poles, two beyond the band edges, and the netlist's own range."""
     roots: Complex = np.array([pole.s for pole in numbers.poles.poles], dtype=complex)
+    if numbers.network.lines:
+        from tauledger.network.lines import lumped
+        from tauledger.network.spectrum import pole_frequencies
+
+        roots = pole_frequencies(lumped(numbers.network))
     reach = frequency_range(roots, np.array([], dtype=complex)) or (1.0, 1e6)
     # the range is a thousand times wider than the poles; a hundredth of that is a decade beyond
     start, stop = reach[0] * 100.0, min(reach[1] / 100.0, HIGHEST_HZ)

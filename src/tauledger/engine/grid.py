@@ -1,4 +1,4 @@
-"""Frequencies: the logarithmic grid that ngspice lays out itself, and the way to ask it for any list."""
+"""Frequencies: the grids that ngspice lays out itself, by decades or evenly, and the way to ask it for any list."""
 
 from __future__ import annotations
 
@@ -12,10 +12,12 @@ GRID_TOLERANCE = 1e-9
 # ngspice reads a number to within its last bit and rounds the number of steps down: at a whole number of decades that
 # bit decides. A stop this much higher keeps the count, and moves the frequencies by less than rounding of the sweep.
 STOP_MARGIN = 1e-13
+# A short list is asked point by point, exact where it was asked.
+LONG = 16
 
 
 class Grid(Struct, frozen=True):
-    """One AC run: `points` per decade from start to stop; points = 0 asks for the single frequency `start_hz`."""
+    """One AC run of `count` frequencies from start to stop, `points` per decade; points = 0 spaces them evenly."""
 
     points: int
     start_hz: float
@@ -33,10 +35,16 @@ def decades(start_hz: float, stop_hz: float, points: int) -> NDArray[np.float64]
     return np.geomspace(start_hz, stop_hz, steps + 1)
 
 
+def evenly(start_hz: float, stop_hz: float, count: int) -> NDArray[np.float64]:
+    """Give `count` evenly spaced frequencies (n,) in Hz, both ends included; one run of the engine where there are 16."""
+    return np.linspace(start_hz, stop_hz, count)
+
+
 def plan(frequency_hz: NDArray[np.float64]) -> tuple[Grid, ...]:
     """Give the AC runs that answer these frequencies (n,) in their order.
 
-    A geometric list is one run, where a whole number of points per decade lays it out; any other is one run each.
+    A geometric list is one run, where a whole number of points per decade lays it out; so is a long list that is evenly
+    spaced. Any other is one run each.
     """
     n = len(frequency_hz)
     start, stop = float(frequency_hz[0]), float(frequency_hz[-1])
@@ -46,6 +54,9 @@ def plan(frequency_hz: NDArray[np.float64]) -> tuple[Grid, ...]:
         same_count = all(_steps(start, end, points) == n - 1 for end in (higher, stop * (1.0 + 2.0 * STOP_MARGIN)))
         if same_count and np.max(np.abs(frequency_hz / np.geomspace(start, stop, n) - 1.0)) < GRID_TOLERANCE:
             return (Grid(points, start, higher, n),)
+        even = np.linspace(start, stop, n)
+        if n >= LONG and np.max(np.abs(frequency_hz / even - 1.0)) < GRID_TOLERANCE:
+            return (Grid(0, start, stop, n),)
     return singly(frequency_hz)
 
 

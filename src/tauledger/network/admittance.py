@@ -16,7 +16,7 @@ from numpy.typing import NDArray
 from tauledger.circuit import GROUND
 from tauledger.devices.parts import Part, capacitance, conductance, transconductance
 from tauledger.network.assemble import Network, Triplets, assemble, incidence
-from tauledger.network.lines import line_moments, line_rows
+from tauledger.network.lines import at_rest, line_moments, line_rows
 
 if TYPE_CHECKING:
     from tauledger.network.solve import Solution
@@ -130,8 +130,10 @@ def times(matrix: Triplets, x: Complex) -> Complex:
 def all_pass(network: Network) -> Network:
     """Give the network with every delay as the all-pass (1 − s·τ/2)/(1 + s·τ/2), which has the same phase to (s·τ)².
 
-    An inner node x of 1 S and τ/2 F follows the control, and the current is value·(2·v(x) − v(control)).
+    An inner node x of 1 S and τ/2 F follows the control, and the current is value·(2·v(x) − v(control)). Lines
+    are taken as at DC.
     """
+    network = at_rest(network)
     if not network.delayed:
         return network
     parts: list[Part] = []

@@ -10,9 +10,11 @@ import numpy as np
 from msgspec import Struct
 from msgspec.structs import replace
 
-from tauledger.network.angle import Angle
+from tauledger.network.angle import Angle, scanned_angle
 from tauledger.network.assemble import Network
+from tauledger.network.lines import lumped
 from tauledger.network.midband import MidBand, frequency_range
+from tauledger.network.ripple import with_ripple
 from tauledger.network.solve import Complex, Real, log_slope, on_axis, response, solve
 from tauledger.network.spectrum import frequency_grid, pole_frequencies, zero_frequencies
 
@@ -21,6 +23,8 @@ POINTS_PER_DECADE = 60
 SHALLOW_SLOPE = 0.2
 LEVEL_SLOPE = 1e-3
 UNCHANGED = 0.01
+# Two peaks of a ripple, seen by the scan's points, are the same within this.
+SAME_HEIGHT = 1.0 - 1e-3
 # Newton's step squares: one this small leaves rounding alone.
 LAST_STEP = 1e-8
 
@@ -78,17 +82,22 @@ def find_edges(network: Network, midband: MidBand) -> Edges:
     midband: its frequency and gain are the reference; see `at_same_frequency` for a changed network.
     Raises NetworkError where the network has no unique solution.
     """
-    poles = pole_frequencies(network)
-    zeros = zero_frequencies(network, poles)
+    rational = lumped(network)
+    poles = pole_frequencies(rational)
+    zeros = zero_frequencies(rational, poles)
     reach = frequency_range(poles, zeros)
     if reach is None:
         return Edges(None, None, np.zeros(0), np.zeros(0, dtype=complex))
     frequency = frequency_grid(*reach, POINTS_PER_DECADE, np.concatenate([poles, zeros]))
+    frequency = frequency[frequency >= midband.floor_hz]
     h = response(network, frequency)
+    if network.lines:
+        level = HALF_POWER * abs(midband.gain)
+        frequency, h = with_ripple(network, frequency, h, from_hz=midband.frequency_hz, level=level)
     above, below = _sides(midband, frequency, np.abs(h))
-    angle = Angle(poles, zeros, midband)
+    angle = scanned_angle(midband, frequency, h) if network.lines else Angle(poles, zeros, midband)
     return Edges(
-        f_low=None if midband.frequency_hz == 0.0 else _edge(network, midband, below, angle),
+        f_low=None if midband.reaches_dc else _edge(network, midband, below, angle),
         f_high=_edge(network, midband, above, angle),
         frequency_hz=frequency,
         response=h,
@@ -124,7 +133,8 @@ def _edge(network: Network, midband: MidBand, side: _Side, angle: Angle) -> Edge
         phase = angle.beyond_midband(hz, complex(at.response[0]))
     peaking_db, peaking_at = _peaking(network, midband, side)
     end = solve(network, on_axis(side.frequency_hz[-1:]))
-    levels = abs(float(log_slope(network, end)[0].real)) < LEVEL_SLOPE
+    # a ripple is level at many places, and settles at none
+    levels = not network.lines and abs(float(log_slope(network, end)[0].real)) < LEVEL_SLOPE
     edge = Edge(
         hz=hz,
         slope=slope,
@@ -178,9 +188,18 @@ def crossing(network: Network, magnitude: float, a_hz: float, b_hz: float) -> fl
     return float(np.exp(u))
 
 
+def _first_highest(gain: Real) -> int:
+    """Give the place of the highest gain; of peaks that repeat themselves, as a line's do, the first."""
+    high = gain >= SAME_HEIGHT * gain.max()
+    first = int(np.argmax(high))
+    after = np.flatnonzero(~high[first:])
+    last = first + int(after[0]) if len(after) else len(gain)
+    return first + int(np.argmax(gain[first:last]))
+
+
 def _peaking(network: Network, midband: MidBand, side: _Side) -> tuple[float, float | None]:
     """Give the highest gain on this side in dB above mid-band and its frequency, refined by the exact slope."""
-    top = int(np.argmax(side.gain))
+    top = _first_highest(side.gain)
     if top == 0 or side.gain[top] <= 1.0 + 1e-9:
         return 0.0, None
     if top == len(side.gain) - 1:

@@ -27,6 +27,8 @@ if TYPE_CHECKING:
 Real = NDArray[np.float64]
 Complex = NDArray[np.complex128]
 
+MOST_ENTRIES = 2_000_000
+
 
 class Solution(Struct, frozen=True):
     """x and λ at each complex frequency s: s (k,), x (k, n), adjoint λ (k, n), response H (k,)."""
@@ -46,9 +48,12 @@ def solve(network: Network, s: Complex) -> Solution:
     if network.size > DENSE_LIMIT:
         x, adjoint = _sparse(network, s, adjoint=True)
     else:
-        y = admittance(network, s)
-        x = _dense(y, network.drive)
-        adjoint = _dense(y.transpose(0, 2, 1), network.output.astype(complex))
+        output = network.output.astype(complex)
+        solved = []
+        for some in _batches(network, s):
+            y = admittance(network, some)
+            solved.append((_dense(y, network.drive), _dense(y.transpose(0, 2, 1), output)))
+        x, adjoint = (np.concatenate(found) for found in zip(*solved, strict=True))
     return Solution(s, x, adjoint, _output(network, x))
 
 
@@ -61,8 +66,14 @@ def response(network: Network, frequency_hz: Real) -> Complex:
     if network.size > DENSE_LIMIT:
         x, _ = _sparse(network, s, adjoint=False)
     else:
-        x = _dense(admittance(network, s), network.drive)
+        x = np.concatenate([_dense(admittance(network, some), network.drive) for some in _batches(network, s)])
     return _output(network, x)
+
+
+def _batches(network: Network, s: Complex) -> list[Complex]:
+    """Cut s (k,) so that the matrices solved at once stay small."""
+    count = max(1, MOST_ENTRIES // network.size**2)
+    return [s[first : first + count] for first in range(0, max(len(s), 1), count)]
 
 
 def on_axis(frequency_hz: Real | float) -> Complex:

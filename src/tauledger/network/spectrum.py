@@ -13,6 +13,7 @@ from msgspec.structs import replace
 from tauledger.errors import NetworkError
 from tauledger.network.admittance import slope_moment
 from tauledger.network.assemble import Network
+from tauledger.network.lines import at_rest
 from tauledger.network.solve import Complex, Real, log_slope, solve
 
 # Beyond 1e15 Hz only rounding of the infinite natural frequencies is found.
@@ -29,9 +30,10 @@ RESONANCE_OFFSETS = np.concatenate([-_SPREAD[::-1], _SPREAD])
 def pole_frequencies(network: Network) -> Complex:
     """Give all finite poles in rad/s, sorted by magnitude, then by the sign of the imaginary part.
 
-    Poles at the origin (a node without a path for direct current) are exact zeros.
+    Poles at the origin (a node without a path for direct current) are exact zeros. Lines are taken as at DC.
     Raises NetworkError where G + s·C is singular at every s.
     """
+    network = at_rest(network)
     g = network.conductance.dense(network.size)
     c = network.capacitance.dense(network.size)
     lowest = _lowest(g, c)
@@ -47,11 +49,12 @@ def zero_frequencies(network: Network, poles: Complex) -> Complex:
     They are the natural frequencies of the bordered pencil [Y −b; eᵀ 0] (output nulled, drive free). That pencil is
     defective at infinity and at the origin, where rounding scatters its values; so the zeros at the origin are counted
     by the slope of H, and elsewhere a value counts only where H really vanishes. A zero that lies a million times below
-    the lowest pole counts as one at the origin. `poles` (rad/s) sets the range. Delays are left out, as in the poles.
+    the lowest pole counts as one at the origin. `poles` (rad/s) sets the range. Delays are left out, and
+    lines taken as at DC, as in the poles.
     Raises NetworkError where the pencil is singular at every s: no signal reaches the output.
     Source: Rosenbrock, "State-space and multivariable theory", 1970 (system matrix).
     """
-    network = replace(network, delayed=())
+    network = replace(at_rest(network), delayed=())
     finite = np.abs(poles[np.abs(poles) > 0.0])
     if not len(finite):
         return np.zeros(0, dtype=complex)
