@@ -6,14 +6,11 @@ from collections.abc import Callable, Sequence
 
 import numpy as np
 from msgspec import Struct
-from msgspec.structs import replace
-from numpy.typing import NDArray
 
 from tauledger.answers.answer import Subject
-from tauledger.answers.stray import READABLE_DB, Mask, Stray, Target, find_strays, rms_db
+from tauledger.answers.stray import READABLE_DB, Mask, Stray, Target, decibels, find_strays, rms_db
+from tauledger.answers.stray_rerun import proven
 from tauledger.asked import MeasuredCurve
-from tauledger.circuit import ADDED, GROUND, Circuit, fold
-from tauledger.engine.client import Engine
 from tauledger.network.midband import MidBand
 from tauledger.network.solve import Complex, Real, response
 from tauledger.numbers import Numbers
@@ -26,7 +23,6 @@ from tauledger.record import (
     Review,
     StrayFacts,
 )
-from tauledger.simulated import simulate
 
 # Common practice: a probe and its calibration are good for so much.
 LEAVES_DB, LEAVES_DEG = 1.0, 5.0
@@ -73,18 +69,18 @@ def compare_curve(found: Review, subject: Subject, curve: MeasuredCurve) -> Curv
     frequency = np.array(curve.frequency_hz)
     reference = run(frequency)
     beside = _beside(curve, reference, midband, found.f_high)
-    level_db = _db(np.array([midband.gain]))[0] + beside.offset_db
+    level_db = decibels(np.array([midband.gain]))[0] + beside.offset_db
     fitted = (frequency >= midband.frequency_hz) & (beside.measured_db >= level_db - FITTED_DB)
     target = Target(frequency, beside.measured_db, fitted, beside.level)
     enough = int(fitted.sum()) >= FEWEST_FITTED
-    before = rms_db(target, _db(reference)) if enough else None
+    before = rms_db(target, decibels(reference)) if enough else None
     strays: tuple[Stray, ...] = ()
     if before is not None and before > READABLE_DB and numbers.trusted:
         strays = find_strays(target, numbers, subject.explanation)
     facts = [_stray_facts(stray) for stray in strays]
     explained: Real | None = None
     if facts:
-        facts[0], explained = _proven(facts[0], target, numbers, engine)
+        facts[0], explained = proven(facts[0], target, numbers, engine)
         explained = explained + beside.offset_db
     at_db = int(np.argmax(np.abs(beside.difference_db)))
     at_deg = int(np.argmax(np.abs(beside.difference_deg))) if beside.difference_deg is not None else None
@@ -115,7 +111,7 @@ def compare_curve(found: Review, subject: Subject, curve: MeasuredCurve) -> Curv
 def _beside(curve: MeasuredCurve, reference: Complex, midband: MidBand, f_high: EdgeFacts | None) -> _Beside:
     frequency, measured = np.array(curve.frequency_hz), np.array(curve.gain_db)
     level = _level(frequency, midband, f_high)
-    difference = measured - _db(reference)
+    difference = measured - decibels(reference)
     offset = float(difference[level].mean())
     if curve.phase_deg is None:
         return _Beside(frequency, measured, reference, level, offset, difference - offset, None, None)
@@ -204,8 +200,8 @@ def _falls_below(beside: _Beside, midband: MidBand, level_db: float, run: Run, *
     inside, outside = at[beyond[0] - 1], at[beyond[0]]
     part = np.linspace(0.0, 1.0, BETWEEN_POINTS)
     fine = frequency[inside] * (frequency[outside] / frequency[inside]) ** part
-    off = beside.measured_db - _db(beside.reference)
-    return _crossing(fine, _db(run(fine)) + off[inside] + part * (off[outside] - off[inside]) - level_db)
+    off = beside.measured_db - decibels(beside.reference)
+    return _crossing(fine, decibels(run(fine)) + off[inside] + part * (off[outside] - off[inside]) - level_db)
 
 
 def _reference_hz(edge: EdgeFacts | None) -> float | None:
@@ -220,7 +216,7 @@ def _unity(numbers: Numbers) -> float | None:
     else:
         frequency, h = numbers.edges.frequency_hz, numbers.edges.response
     above = frequency >= numbers.midband.frequency_hz
-    return _crossing(frequency[above], _db(h[above]))
+    return _crossing(frequency[above], decibels(h[above]))
 
 
 def _verdict(before: float | None, strays: Sequence[StrayFacts], *, trusted: bool) -> str:
@@ -235,47 +231,6 @@ def _stray_facts(stray: Stray) -> StrayFacts:
     return StrayFacts(stray.plus, stray.minus, stray.farad, stray.rms_db)
 
 
-def _proven(
-    stray: StrayFacts, target: Target, numbers: Numbers, engine: Engine | None
-) -> tuple[StrayFacts, NDArray[np.float64]]:
-    """Run ngspice with the capacitance in place, and leave it with the deck that it had; gives the curve in dB (k,)."""
-    circuit = numbers.circuit
-    if engine is None or circuit is None or numbers.simulated is None:
-        from tauledger.network.added import places, response_with
-
-        place = places(numbers.network, [(stray.plus, stray.minus)], target.frequency_hz)
-        curve = _db(response_with(place, np.array([stray.capacitance_f]))[:, 0])
-        return replace(stray, rms_db=rms_db(target, curve)), curve
-    engine.bias(with_capacitor(circuit, stray.plus, stray.minus, stray.capacitance_f), ())
-    curve = _db(engine.sweep(target.frequency_hz).response)
-    again = simulate(engine.sweep, numbers.simulated.sweep.frequency_hz, midband=numbers.midband)
-    engine.bias(circuit, ())
-    return replace(stray, rms_db=rms_db(target, curve), f_high_rerun_hz=again.f_high_hz, rerun=True), curve
-
-
-def with_capacitor(circuit: Circuit, plus: str, minus: str, farad: float) -> Circuit:
-    """Give the circuit with one capacitor more; drive and output stay as they were chosen."""
-    taken = {fold(name) for name in (*circuit.passives.name, *(element.name for element in circuit.elements))}
-    name = next(name for name in (f"Cstray{k or ''}" for k in range(len(taken) + 1)) if fold(name) not in taken)
-    number = {node: k for k, node in enumerate(circuit.nodes)}
-    passives = circuit.passives
-
-    def one(column: NDArray[np.int32], value: int) -> NDArray[np.int32]:
-        return np.append(column, np.int32(value)).astype(np.int32)
-
-    more = replace(
-        passives,
-        kind=passives.kind + "C",
-        name=(*passives.name, name),
-        a=one(passives.a, number[plus]),
-        b=one(passives.b, 0 if minus == GROUND else number[minus]),
-        value=np.append(passives.value, farad),
-        card=one(passives.card, ADDED),
-        path=one(passives.path, 0),
-    )
-    return replace(circuit, passives=more)
-
-
 def _points(curve: MeasuredCurve, beside: _Beside, explained: Real | None) -> tuple[CurvePoint, ...]:
     reference_deg = np.degrees(np.unwrap(np.angle(beside.reference)))
     return tuple(
@@ -283,7 +238,7 @@ def _points(curve: MeasuredCurve, beside: _Beside, explained: Real | None) -> tu
             frequency_hz=hz,
             gain_db=curve.gain_db[k],
             phase_deg=None if curve.phase_deg is None else curve.phase_deg[k],
-            reference_db=float(_db(beside.reference[k : k + 1])[0]),
+            reference_db=float(decibels(beside.reference[k : k + 1])[0]),
             reference_deg=float(reference_deg[k]),
             difference_db=float(beside.difference_db[k]),
             difference_deg=None if beside.difference_deg is None else float(beside.difference_deg[k]),
@@ -291,7 +246,3 @@ def _points(curve: MeasuredCurve, beside: _Beside, explained: Real | None) -> tu
         )
         for k, hz in enumerate(curve.frequency_hz)
     )
-
-
-def _db(h: Complex) -> Real:
-    return np.asarray(20.0 * np.log10(np.maximum(np.abs(h), np.finfo(float).tiny)))

@@ -7,6 +7,7 @@ import math
 
 from tauledger.asked import MeasuredCurve
 from tauledger.errors import Diagnostic, NetlistError
+from tauledger.netlist.diagnostics import visible
 
 REQUIRED, OPTIONAL = ("f_hz", "gain_db"), ("phase_deg",)
 HEADER = "f_hz,gain_db,phase_deg"
@@ -26,7 +27,7 @@ def read_curve(data: bytes, path: str) -> MeasuredCurve:
     lines = _text(data, path).splitlines()
     written = [(number, line) for number, line in enumerate(lines, 1) if line.strip() and not _is_comment(line)]
     if not written:
-        raise NetlistError(Diagnostic(path, 1, 1, lines[0] if lines else "", "there is no curve in this file", _FORM))
+        raise NetlistError(_fault(path, 1, 1, lines[0] if lines else "", "there is no curve in this file", _FORM))
     header, *rows = written
     columns = _columns(path, *header)
     faults: list[Diagnostic] = []
@@ -40,7 +41,7 @@ def read_curve(data: bytes, path: str) -> MeasuredCurve:
             hint = "give one line for each frequency"
             start, text = _fields(line)[columns.index("f_hz")]
             message = f"{text} Hz stands in line {before} already"
-            faults.append(Diagnostic(path, number, start, line, message, hint, len(text)))
+            faults.append(_fault(path, number, start, line, message, hint, len(text)))
         else:
             points[point["f_hz"]] = number, point
         if len(faults) == MOST_FAULTS:
@@ -50,7 +51,7 @@ def read_curve(data: bytes, path: str) -> MeasuredCurve:
     if not 2 <= len(points) <= MOST_POINTS:
         number, line = rows[-1] if rows else header
         message = f"{len(points)} point{'' if len(points) == 1 else 's'}: no curve that can be compared"
-        raise NetlistError(Diagnostic(path, number, 1, line, message, f"give 2 to {MOST_POINTS} points", len(line)))
+        raise NetlistError(_fault(path, number, 1, line, message, f"give 2 to {MOST_POINTS} points", len(line)))
     ordered = [points[hz][1] for hz in sorted(points)]
     return MeasuredCurve(
         path,
@@ -73,7 +74,7 @@ def _text(data: bytes, path: str) -> str:
         column = len(data[start : error.start].decode("utf-8")) + 1
         message = f"byte 0x{data[error.start]:02x} is no UTF-8"
         line = before.count(b"\n") + 1
-        raise NetlistError(Diagnostic(path, line, column, whole, message, "save the file as UTF-8")) from error
+        raise NetlistError(_fault(path, line, column, whole, message, "save the file as UTF-8")) from error
 
 
 def _is_comment(line: str) -> bool:
@@ -100,12 +101,12 @@ def _columns(path: str, number: int, line: str) -> tuple[str, ...]:
         name = text.casefold()
         if name not in (*REQUIRED, *OPTIONAL) or name in names:
             what = f"the column {text} stands there twice" if name in names else f"no such column: {text or 'no name'}"
-            raise NetlistError(Diagnostic(path, number, start, line, what, _FORM, len(text)))
+            raise NetlistError(_fault(path, number, start, line, what, _FORM, len(text)))
         names.append(name)
     missing = [name for name in REQUIRED if name not in names]
     if missing:
         what = f"the column {missing[0]} is missing"
-        raise NetlistError(Diagnostic(path, number, 1, line, what, _FORM, len(line)))
+        raise NetlistError(_fault(path, number, 1, line, what, _FORM, len(line)))
     return tuple(names)
 
 
@@ -115,19 +116,19 @@ def _point(path: str, number: int, line: str, columns: tuple[str, ...]) -> dict[
         many = "1 field" if len(fields) == 1 else f"{len(fields)} fields"
         hint = f"give {', '.join(columns)}, a comma between them and a point in each number"
         start = fields[len(columns)][0] if len(fields) > len(columns) else len(line) + 1
-        return Diagnostic(path, number, start, line, f"{many} where the header names {len(columns)}", hint)
+        return _fault(path, number, start, line, f"{many} where the header names {len(columns)}", hint)
     point: dict[str, float] = {}
     for name, (start, text) in zip(columns, fields, strict=True):
         value = _number(text)
         if value is None:
             hint = "write a plain number, e.g. 2.2e6"
-            return Diagnostic(path, number, start, line, f"{name} is no number: {text or 'nothing'}", hint, len(text))
+            return _fault(path, number, start, line, f"{name} is no number: {text or 'nothing'}", hint, len(text))
         if name == "f_hz" and value <= 0.0:
             hint = "leave the point out: a band edge has no place there"
-            return Diagnostic(path, number, start, line, "the frequency must be above 0 Hz", hint, len(text))
+            return _fault(path, number, start, line, "the frequency must be above 0 Hz", hint, len(text))
         if name == "gain_db" and abs(value) > LARGEST_DB:
             hint = "give 20·log10 of the gain"
-            return Diagnostic(path, number, start, line, f"{text} dB is no gain", hint, len(text))
+            return _fault(path, number, start, line, f"{text} dB is no gain", hint, len(text))
         point[name] = value
     return point
 
@@ -139,3 +140,7 @@ def _number(text: str) -> float | None:
     except ValueError:
         return None
     return value if math.isfinite(value) else None
+
+
+def _fault(path: str, line: int, column: int, text: str, message: str, hint: str, width: int = 1) -> Diagnostic:
+    return Diagnostic(visible(path), line, column, visible(text), visible(message), hint, width)

@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 from tauledger.circuit import GROUND
 from tauledger.explain import Explanation
 from tauledger.network.added import Places, places, response_with
-from tauledger.network.solve import Real
+from tauledger.network.solve import Complex, Real
 from tauledger.numbers import Numbers
 
 SMALLEST_F, LARGEST_F = 1e-15, 10e-9
@@ -45,6 +45,11 @@ class Stray(Struct, frozen=True):
     rms_db: float
 
 
+def decibels(h: Complex) -> Real:
+    """Give 20·log10 of |H|, of any shape."""
+    return np.asarray(20.0 * np.log10(np.maximum(np.abs(h), np.finfo(float).tiny)))
+
+
 def rms_db(target: Target, model_db: Real) -> float:
     """Give the rms difference over the fitted points in dB, the mean difference over the level's points taken out.
 
@@ -66,7 +71,7 @@ def find_strays(target: Target, numbers: Numbers, explanation: Explanation) -> t
     if not pairs or not target.fitted.any():
         return ()
     found = places(numbers.network, pairs, target.frequency_hz)
-    before = float(_rms(target, _db(found, np.zeros(len(pairs))))[0])
+    before = float(_rms(target, decibels(response_with(found, np.zeros(len(pairs)))))[0])
     farad, error = _best(target, found)
     strays = [Stray(*pair, float(f), float(e)) for pair, f, e in zip(pairs, farad, error, strict=True)]
     strays = sorted((s for s in strays if s.rms_db <= HALF * before), key=lambda s: s.rms_db)
@@ -114,11 +119,6 @@ def _thinned(target: Target) -> Target:
     return Target(target.frequency_hz[kept], target.gain_db[kept], target.fitted[kept], target.level[kept])
 
 
-def _db(found: Places, farad: Real) -> Real:
-    size = np.abs(response_with(found, farad))
-    return np.asarray(20.0 * np.log10(np.maximum(size, np.finfo(float).tiny)))
-
-
 def _rms(target: Target, model_db: Real) -> Real:
     """Give the rms difference (m,) to models (k, m)."""
     difference = target.gain_db[:, None] - model_db
@@ -133,7 +133,7 @@ def _best(target: Target, found: Places) -> tuple[Real, Real]:
     grid = np.log(np.geomspace(SMALLEST_F, LARGEST_F, round(decades * STEPS_PER_DECADE) + 1))
 
     def error(log_farad: Real) -> Real:
-        return _rms(target, _db(found, np.exp(log_farad)))
+        return _rms(target, decibels(response_with(found, np.exp(log_farad))))
 
     scanned = np.array([error(np.full(many, at)) for at in grid])
     k = np.clip(np.argmin(scanned, axis=0), 1, len(grid) - 2)

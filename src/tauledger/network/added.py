@@ -31,7 +31,7 @@ class Places(Struct, frozen=True):
 def places(network: Network, pairs: Sequence[tuple[str, str]], frequency_hz: Real) -> Places:
     """Solve the network for a capacitance between each pair of nodes ("0": ground) at every frequency (k,) in Hz.
 
-    Raises NetworkError where the network has no unique solution, ValueError where it has no such node.
+    Raises NetworkError where the network has no unique solution.
     """
     s = on_axis(frequency_hz)
     d = np.array([incidence(network, plus, minus) for plus, minus in pairs], dtype=float).reshape(-1, network.size).T
