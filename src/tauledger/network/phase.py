@@ -47,9 +47,9 @@ def phase_used(found: PoleZeroMap, *, midband_hz: float, hz: float, used_deg: fl
     return PhaseUsed(poles, zeros, used_deg - sum(one.degrees for one in (*poles, *zeros)))
 
 
-def phase_identities(used: PhaseUsed, used_deg: float, *, delayed: bool) -> tuple[Identity, ...]:
-    """The degrees of all poles and zeros add to the phase used; with a delay they need not, for it is no such root."""
-    if delayed:
+def phase_identities(used: PhaseUsed, used_deg: float, *, rational: bool) -> tuple[Identity, ...]:
+    """The degrees of all poles and zeros add to the phase used; rational: they are all there is, and no delay."""
+    if not rational:
         return ()
     total = sum(one.degrees for one in (*used.poles, *used.zeros))
     scale = max(1.0, *(abs(one.degrees) for one in (*used.poles, *used.zeros)))
