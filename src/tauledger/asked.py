@@ -18,10 +18,18 @@ class Asked(Struct, frozen=True):
     """The questions of one review; each field is one option, and empty where it was not asked.
 
     at_hz: frequencies in Hz at which gain and phase are wanted. curve: to be set beside ngspice.
+    swing_v: peak at the output in V for the large-signal figures, None for 1 V. outputs: further outputs, as typed.
+    impedances: input and output impedance are wanted. unity: who sets unity gain and margin is wanted wherever there is
+    one. peaking: who makes the peaking is wanted.
     """
 
     at_hz: tuple[float, ...] = ()
     curve: MeasuredCurve | None = None
+    swing_v: float | None = None
+    outputs: tuple[str, ...] = ()
+    impedances: bool = False
+    unity: bool = False
+    peaking: bool = False
 
 
 NOTHING_ASKED = Asked()

@@ -32,8 +32,24 @@ def answer(found: Review, subject: Subject, asked: Asked) -> Review:
 
     Raises InputError for a question that this circuit cannot answer.
     """
+    if found.midband.unit in ("V/V", "A/A") and found.midband.gain_db > 0.0:
+        from tauledger.answers.unity import unity_facts
+
+        found = replace(found, f_unity=unity_facts(found, subject, asked=asked.unity))
+    if asked.at_hz:
+        from tauledger.answers.at import at_facts
+
+        found = replace(found, at=at_facts(subject, asked.at_hz))
+    if asked.peaking:
+        from tauledger.answers.peaking import peak_facts
+
+        found = replace(found, peaking=peak_facts(subject))
     if asked.curve is not None:
         from tauledger.answers.curve import compare_curve
 
         found = replace(found, curve=compare_curve(found, subject, asked.curve))
+    if subject.explanation.hand is not None:
+        from tauledger.answers.large_signal import with_large_signal
+
+        found = with_large_signal(found, subject, asked.swing_v)
     return found

@@ -19,6 +19,9 @@ Command = Callable[..., ExitCode]
 
 _OPTIONS = (
     click.option("--at", "at", metavar="HZ", multiple=True, help="Gain and phase at HZ, e.g. 10meg; repeatable."),
+    click.option("--unity", is_flag=True, help="Show who sets unity gain and phase margin, whatever the circuit."),
+    click.option("--peaking", is_flag=True, help="Show who makes the peaking."),
+    click.option("--swing", metavar="V", help="Peak at the output for the large-signal figures, e.g. 3; else 1 V."),
     click.option(
         "--curve", "curve", metavar="CSV", help="Set a measured curve (f_hz,gain_db,phase_deg) beside ngspice."
     ),
@@ -29,11 +32,16 @@ def questions(command: Command) -> Command:
     """Give `command`, which takes `asked: Asked`, the options that ask; InputError where one cannot be used."""
 
     @wraps(command)
-    def asking(*, at: tuple[str, ...], curve: str | None, **others: object) -> ExitCode:
+    def asking(
+        *, at: tuple[str, ...], unity: bool, peaking: bool, swing: str | None, curve: str | None, **others: object
+    ) -> ExitCode:
         from tauledger.asked import Asked
 
         asked = Asked(
             at_hz=tuple(hertz("--at", given) for given in at),
+            unity=unity,
+            peaking=peaking,
+            swing_v=None if swing is None else _volt(swing),
             curve=None if curve is None else _measured(curve),
         )
         return command(asked=asked, **others)
@@ -41,6 +49,15 @@ def questions(command: Command) -> Command:
     for option in reversed(_OPTIONS):
         asking = option(asking)
     return asking
+
+
+def _volt(given: str) -> float:
+    from tauledger.netlist.numbers import read_number
+
+    number = read_number(given.strip())
+    if number is None or number.tail or not 0.0 < number.value < float("inf"):
+        raise InputError(f"--swing {given}: not a peak value in V", "give volts above 0 as a netlist would, e.g. 3")
+    return number.value
 
 
 def _measured(path: str) -> MeasuredCurve:

@@ -1,0 +1,115 @@
+"""Gain and phase at the frequencies that were asked for, with what moves them most."""
+
+from __future__ import annotations
+
+import math
+
+import numpy as np
+
+from tauledger.answers.answer import Subject
+from tauledger.answers.elements import elements
+from tauledger.errors import InputError
+from tauledger.network.solve import response
+from tauledger.network.targets import PERCENT, gain_moves
+from tauledger.numbers import HIGHEST_HZ, Numbers
+from tauledger.quantity import engineering
+from tauledger.record import AtElement, AtFacts
+
+# By 10 % of an element: below these nobody looks.
+WORTH_A_FRACTION = 5e-3
+WORTH_DEGREES = 0.1
+DEGREE = 0.01
+
+
+def at_facts(subject: Subject, at_hz: tuple[float, ...]) -> tuple[AtFacts, ...]:
+    """Give gain and phase at each frequency in Hz, simulated by a run of its own and exact.
+
+    Raises InputError for 0 Hz and for more than 1 THz.
+    """
+    for hz in at_hz:
+        if not 0.0 < hz <= HIGHEST_HZ:
+            raise InputError(
+                f"--at {engineering(hz, 'Hz', 4)}: no frequency to look at",
+                "give one above 0 Hz up to 1 THz, e.g. 10meg",
+            )
+    return tuple(_at(subject, hz) for hz in at_hz)
+
+
+def _at(subject: Subject, hz: float) -> AtFacts:
+    numbers = subject.numbers
+    exact = complex(response(numbers.network, np.array([hz]))[0]) if numbers.trusted else None
+    beyond = None if exact is None else _beyond_midband(numbers, hz, exact)
+    run = None
+    if subject.engine is not None and numbers.simulated is not None:
+        run = complex(subject.engine.sweep(np.array([hz])).response[0])
+    run_beyond = None if run is None else _simulated_beyond(numbers, hz, run, beyond)
+    return AtFacts(
+        hz=hz,
+        simulated_db=None if run is None else _db(run),
+        simulated_deg=None if run_beyond is None else run_beyond + _midband_deg(numbers),
+        simulated_beyond_deg=run_beyond,
+        exact_db=None if exact is None else _db(exact),
+        exact_deg=None if beyond is None else beyond + _midband_deg(numbers),
+        exact_beyond_deg=beyond,
+        elements=_elements(numbers, hz) if exact is not None else (),
+    )
+
+
+def _db(h: complex) -> float:
+    return 20.0 * math.log10(abs(h))
+
+
+def _midband_gain(numbers: Numbers) -> complex:
+    """Give the gain that phases are counted from: ngspice's own where the network is not trusted."""
+    if not numbers.trusted and numbers.simulated is not None:
+        return numbers.simulated.midband.gain
+    return numbers.midband.gain
+
+
+def _midband_deg(numbers: Numbers) -> float:
+    gain = _midband_gain(numbers)
+    return math.degrees(math.atan2(gain.imag, gain.real))
+
+
+def _beyond_midband(numbers: Numbers, hz: float, h: complex) -> float:
+    angle = numbers.edges.angle
+    if angle is None:
+        return float(np.angle(h / numbers.midband.gain, deg=True))
+    return angle.beyond_midband(hz, h)
+
+
+def _simulated_beyond(numbers: Numbers, hz: float, h: complex, exact_deg: float | None) -> float:
+    """Give ngspice's phase beyond mid-band; its whole turns are the network's, or else those of its sweep nearby."""
+    assert numbers.simulated is not None
+    deg = float(np.angle(h / _midband_gain(numbers), deg=True))
+    near = exact_deg
+    if near is None:
+        sweep = numbers.simulated.sweep
+        turned = np.degrees(np.unwrap(np.angle(sweep.response / _midband_gain(numbers))))
+        places = np.abs(np.log(sweep.frequency_hz / hz))
+        reference = numbers.simulated.midband.frequency_hz or float(sweep.frequency_hz[0])
+        start = np.abs(np.log(sweep.frequency_hz / reference))
+        near = float(turned[np.argmin(places)] - 360.0 * np.round(turned[np.argmin(start)] / 360.0))
+    return deg + 360.0 * round((near - deg) / 360.0)
+
+
+def _elements(numbers: Numbers, hz: float) -> tuple[AtElement, ...]:
+    moves = gain_moves(numbers.network, numbers.midband, hz)
+    rows = [
+        AtElement(
+            name=one.name,
+            owner=one.owner,
+            nodes=one.nodes,
+            value=one.value,
+            unit=one.unit,
+            gain=one.sign * moves[one.name].gain,
+            phase_deg=one.sign * PERCENT * moves[one.name].phase_deg,
+        )
+        for one in elements(numbers)
+    ]
+    # 10 % of it
+    rows = [
+        row for row in rows if 0.1 * abs(row.gain) >= WORTH_A_FRACTION or 10.0 * abs(row.phase_deg) >= WORTH_DEGREES
+    ]
+    rows.sort(key=lambda row: -max(abs(row.gain), abs(row.phase_deg) * DEGREE / PERCENT))
+    return tuple(rows)

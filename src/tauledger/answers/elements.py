@@ -1,0 +1,54 @@
+"""The elements of a circuit as a reader names them: cards, the capacitances of devices and their gm."""
+
+from __future__ import annotations
+
+from msgspec import Struct
+
+from tauledger.compose.helps import UNITS, is_element, moves_bias
+from tauledger.numbers import Numbers
+
+LESS = 0.1
+
+
+class Element(Struct, frozen=True):
+    """One element by its part's name; a resistor by its resistance.
+
+    sign: −1 where more of the element is less of the part's value (a resistance beside a conductance), else 1.
+    free: a card that leaves the operating point alone. moves_bias: it takes part in the operating point.
+    """
+
+    name: str
+    owner: str
+    nodes: tuple[str, ...]
+    value: float
+    unit: str
+    sign: float
+    free: bool
+    moves_bias: bool
+
+    @property
+    def ten_percent_less(self) -> float:
+        """Factor on the part's value that is 10 % less of the element."""
+        return float((1.0 - LESS) ** self.sign)
+
+
+def elements(numbers: Numbers) -> tuple[Element, ...]:
+    """Give the elements of the network in its order."""
+    found = []
+    for part in numbers.network.parts:
+        if not is_element(part):
+            continue
+        resistor, bias = part.kind == "conductance", moves_bias(part, numbers)
+        found.append(
+            Element(
+                name=part.name,
+                owner=part.owner,
+                nodes=part.nodes,
+                value=float(1.0 / part.value if resistor else part.value),
+                unit=UNITS.get(part.kind, "S"),
+                sign=-1.0 if resistor else 1.0,
+                free=part.name == part.owner and not bias,
+                moves_bias=bias,
+            )
+        )
+    return tuple(found)

@@ -1,0 +1,106 @@
+"""Unity gain as ngspice alone has it: bracketed in the sweep, then narrowed by runs at single frequencies."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+
+import numpy as np
+from msgspec import Struct
+from numpy.typing import NDArray
+
+from tauledger.engine.grid import decades
+from tauledger.network.solve import Complex, Real
+from tauledger.numbers import HIGHEST_HZ, POINTS_PER_DECADE
+from tauledger.simulated import RunSweep, Simulated
+from tauledger.solution import Sweep
+
+HALF_TURN_DEG = 180.0
+BEYOND = 1.1
+# ngspice keeps 1e-12; a miss this small moves no digit that is shown.
+SMALL = 1e-9
+ROUNDS = 40
+
+Miss = Callable[[complex], float]
+
+
+class SimulatedUnity(Struct, frozen=True):
+    """f_u and both margins by ngspice; the gain margin is None where the phase does not reach −180° in the sweep."""
+
+    hz: float
+    phase_margin_deg: float
+    gain_margin_db: float | None
+    gain_margin_at_hz: float | None
+
+
+def simulate_unity(run: RunSweep, simulated: Simulated, *, reach_hz: float = 0.0) -> SimulatedUnity | None:
+    """Find the first |H| = 1 beyond mid-band; None where the sweep, carried on to 1 THz at most, holds none.
+
+    run: asks the engine for the response at any frequencies. reach_hz: carry the sweep on to there at least.
+    The phase is followed along the sweep from mid-band.
+    """
+    midband = simulated.midband
+    frequency, h = _outwards(run, simulated, reach_hz)
+    turned = np.degrees(np.unwrap(np.angle(h / midband.gain)))
+    below = np.flatnonzero(np.abs(h) < 1.0)
+    if not len(below) or below[0] == 0:
+        return None
+
+    def level(at: complex) -> float:
+        return float(np.log(abs(at)))
+
+    def half_turn(at: complex) -> float:
+        return float(np.angle(-at / midband.gain))
+
+    k = int(below[0])
+    hz, there = _narrowed(run, level, frequency[k - 1 : k + 1], h[k - 1 : k + 1])
+    phase = float(np.degrees(np.angle(there / midband.gain)))
+    phase += 360.0 * round((float(turned[k]) - phase) / 360.0)
+    opposed = np.flatnonzero(turned <= -HALF_TURN_DEG)
+    if not len(opposed) or opposed[0] == 0:
+        return SimulatedUnity(hz, HALF_TURN_DEG + phase, None, None)
+    k = int(opposed[0])
+    turned_hz, left = _narrowed(run, half_turn, frequency[k - 1 : k + 1], h[k - 1 : k + 1])
+    return SimulatedUnity(hz, HALF_TURN_DEG + phase, float(-20.0 * np.log10(abs(left))), turned_hz)
+
+
+def _outwards(run: RunSweep, simulated: Simulated, reach_hz: float) -> tuple[Real, Complex]:
+    """Give the sweep from mid-band upwards, frequency (k,) and H (k,), carried on while |H| exceeds 1 at its end."""
+    sweep, midband = simulated.sweep, simulated.midband
+    above = sweep.frequency_hz > midband.frequency_hz
+    frequency, h = sweep.frequency_hz[above], sweep.response[above]
+    if midband.frequency_hz > 0.0:
+        frequency, h = np.concatenate([[midband.frequency_hz], frequency]), np.concatenate([[midband.gain], h])
+    while frequency[-1] < HIGHEST_HZ and (abs(h[-1]) >= 1.0 or frequency[-1] < reach_hz):
+        stop = min(max(10.0 * float(frequency[-1]), BEYOND * reach_hz), HIGHEST_HZ)
+        more: Sweep = run(decades(float(frequency[-1]), stop, POINTS_PER_DECADE))
+        frequency = np.concatenate([frequency, more.frequency_hz[1:]])
+        h = np.concatenate([h, more.response[1:]])
+    return frequency, h
+
+
+def _narrowed(
+    run: RunSweep, miss: Miss, bracket_hz: NDArray[np.float64], response: NDArray[np.complex128]
+) -> tuple[float, complex]:
+    """Find where `miss` of H falls through zero in a bracket, over ln f, and give the frequency in Hz and H there.
+
+    Source: Dowell and Jarratt, "A modified regula falsi method for computing the root of an equation", BIT 11, 1971.
+    """
+    a, b = (float(u) for u in np.log(bracket_hz))
+    over_a, over_b = miss(complex(response[0])), miss(complex(response[1]))
+    u, there = b, complex(response[1])
+    last = 0
+    for _ in range(ROUNDS):
+        u = (a * over_b - b * over_a) / (over_b - over_a)
+        there = complex(run(np.array([np.exp(u)])).response[0])
+        over = miss(there)
+        if abs(over) <= SMALL:
+            break
+        if over > 0.0:
+            a, over_a = u, over
+            over_b = over_b / 2.0 if last > 0 else over_b
+            last = 1
+        else:
+            b, over_b = u, over
+            over_a = over_a / 2.0 if last < 0 else over_a
+            last = -1
+    return float(np.exp(u)), there
