@@ -6,6 +6,7 @@ import math
 
 from tauledger import __version__
 from tauledger.causes.cause import cause_facts, note_facts
+from tauledger.compose.aids import aid_notes
 from tauledger.compose.helps import helps
 from tauledger.compose.rows import budget_facts, node_rows, part_rows, pole_facts, zero_facts
 from tauledger.compose.setting import cautions, curves, device_facts, drive_facts, output_facts, source_lines, unit_of
@@ -172,7 +173,7 @@ def _difference(hz: float | None, reference: float | None) -> float | None:
 
 
 def _notes(numbers: Numbers, explanation: Explanation, netlist: Netlist | None) -> tuple[NoteFacts, ...]:
-    notes = [note_facts(note) for note in explanation.notes]
+    notes = [*(note_facts(note) for note in explanation.notes), *aid_notes(numbers)]
     notes += [NoteFacts("engine-warning", "", line) for line in (numbers.bias.warnings if numbers.bias else ())]
     read = (*(netlist.notes if netlist else ()), *(numbers.circuit.notes if numbers.circuit else ()))
     return (*notes, *(NoteFacts("how-read", note.where, note.says) for note in dict.fromkeys(read)))

@@ -196,8 +196,9 @@ def merged_nodes(network: Network, class_of: Mapping[str, BandClass]) -> dict[st
 
 
 def _beside_aids(network: Network, aids: Collection[str]) -> dict[str, BandClass]:
-    """Give the class of the measuring aids, and of the capacitors whose ends they join."""
-    tied = lower_nodes(network, {}, aids)
+    """Give the class of the measuring aids, and of the capacitors whose ends they join or tie to a source."""
+    sources = [part for part in network.parts if part.kind == "voltage source"]
+    tied = joined_nodes(network, [*sources, *(network.part(name) for name in aids if _is_capacitor(network, name))])
     found: dict[str, BandClass] = {}
     for part in network.parts:
         if part.name in aids:
@@ -205,6 +206,10 @@ def _beside_aids(network: Network, aids: Collection[str]) -> dict[str, BandClass
         elif part.kind == "capacitance" and tied[part.nodes[0]] == tied[part.nodes[1]]:
             found[part.name] = "open"
     return found
+
+
+def _is_capacitor(network: Network, name: str) -> bool:
+    return network.part(name).kind == "capacitance"
 
 
 def _class(part: Part, ratio: float) -> BandClass:
