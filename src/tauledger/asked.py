@@ -20,7 +20,8 @@ class Asked(Struct, frozen=True):
     at_hz: frequencies in Hz at which gain and phase are wanted. curve: to be set beside ngspice.
     swing_v: peak at the output in V for the large-signal figures, None for 1 V. outputs: further outputs, as typed.
     impedances: input and output impedance are wanted. unity: who sets unity gain and margin is wanted wherever there is
-    one. peaking: who makes the peaking is wanted.
+    one. peaking: who makes the peaking is wanted. loops: places at which the return ratio is wanted, as typed.
+    miller: Miller's factor over frequency, for formats that can show it.
     """
 
     at_hz: tuple[float, ...] = ()
@@ -30,6 +31,8 @@ class Asked(Struct, frozen=True):
     impedances: bool = False
     unity: bool = False
     peaking: bool = False
+    loops: tuple[str, ...] = ()
+    miller: bool = False
 
 
 NOTHING_ASKED = Asked()

@@ -36,6 +36,10 @@ def answer(found: Review, subject: Subject, asked: Asked) -> Review:
         from tauledger.answers.unity import unity_facts
 
         found = replace(found, f_unity=unity_facts(found, subject, asked=asked.unity))
+    if found.f_unity is not None and found.f_unity.elements:
+        from tauledger.answers.phase_budget import phase_budget
+
+        found = replace(found, phase_budget=phase_budget(found, subject))
     if asked.at_hz:
         from tauledger.answers.at import at_facts
 
@@ -48,8 +52,29 @@ def answer(found: Review, subject: Subject, asked: Asked) -> Review:
         from tauledger.answers.curve import compare_curve
 
         found = replace(found, curve=compare_curve(found, subject, asked.curve))
+    if asked.miller:
+        from tauledger.answers.miller import miller_curves
+
+        found = replace(found, miller=miller_curves(subject))
     if subject.explanation.hand is not None:
         from tauledger.answers.large_signal import with_large_signal
 
         found = with_large_signal(found, subject, asked.swing_v)
+    if subject.numbers.trusted and (asked.loops or may_have_a_loop(subject)):
+        from tauledger.answers.loop import with_loops
+
+        found = with_loops(found, subject, asked.loops)
     return found
+
+
+def may_have_a_loop(subject: Subject) -> bool:
+    """Whether it is worth to look for a feedback loop: plain rules do not reach some node, or a source is an amplifier.
+
+    A cheap question before a dear one: most amplifiers have no loop, and paper reaches all of their nodes.
+    """
+    hand = subject.explanation.hand
+    if hand is None:
+        return False
+    if any(part.kind in ("block", "voltage gain", "transresistance") for part in subject.numbers.network.parts):
+        return True
+    return any(line.resistance.source != "rule" for node in hand.nodes for line in node.lines)

@@ -23,6 +23,9 @@ _OPTIONS = (
     click.option("--peaking", is_flag=True, help="Show who makes the peaking."),
     click.option("--swing", metavar="V", help="Peak at the output for the large-signal figures, e.g. 3; else 1 V."),
     click.option(
+        "--loop", "loop", metavar="NAME", multiple=True, help="Return ratio at M6, R3, E2 or Q1.base; repeatable."
+    ),
+    click.option(
         "--curve", "curve", metavar="CSV", help="Set a measured curve (f_hz,gain_db,phase_deg) beside ngspice."
     ),
 )
@@ -33,7 +36,14 @@ def questions(command: Command) -> Command:
 
     @wraps(command)
     def asking(
-        *, at: tuple[str, ...], unity: bool, peaking: bool, swing: str | None, curve: str | None, **others: object
+        *,
+        at: tuple[str, ...],
+        unity: bool,
+        peaking: bool,
+        swing: str | None,
+        loop: tuple[str, ...],
+        curve: str | None,
+        **others: object,
     ) -> ExitCode:
         from tauledger.asked import Asked
 
@@ -43,6 +53,7 @@ def questions(command: Command) -> Command:
             peaking=peaking,
             swing_v=None if swing is None else _volt(swing),
             curve=None if curve is None else _measured(curve),
+            loops=loop,
         )
         return command(asked=asked, **others)
 

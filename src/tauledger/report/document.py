@@ -28,7 +28,7 @@ from tauledger.report.sentences import (
     sentence,
 )
 from tauledger.report.tables import curve as measured
-from tauledger.report.tables import helps, lower, outside, roots, setting, upper, way
+from tauledger.report.tables import helps, large_signal, lower, outside, roots, setting, upper, way
 from tauledger.report.tables.grid import Grid
 from tauledger.report.tables.working import Lines, working
 from tauledger.report.wording import EDGE, fraction, move, withheld
@@ -106,6 +106,7 @@ def document(review: Review) -> Document:
         _bode(review),
         _causes(review),
         _helps(review),
+        _large_signal(review),
         _own(review),
         _curve(review),
         _lower(review),
@@ -243,6 +244,14 @@ def _items(causes: Iterable[CauseFacts], review: Review) -> tuple[Item, ...]:
         Item(f"{EDGE.get(cause.quantity, cause.quantity)} {move(cause.effect)}", cause_text(cause, review))
         for cause in causes
     )
+
+
+def _large_signal(review: Review) -> Section:
+    facts = review.large_signal
+    if facts is None:
+        return Section("large", "", ())
+    blocks = (Prose(sentence(large_signal.first_limit(review))), large_signal.large_signal(facts))
+    return Section("large", "Large signal", blocks)
 
 
 def _helps(review: Review) -> Section:

@@ -9,7 +9,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from tauledger.record import NodeRow, Review
-from tauledger.report import changed, curve, helps, lower, paper, poles, reasons, steps, summary, upper
+from tauledger.report import changed, curve, helps, large_signal, lower, paper, poles, reasons, steps, summary, upper
 from tauledger.report.layout import CAUTION, HEADING, STRONG, WARNING, Line, Section, lay_out
 from tauledger.report.working import workings
 
@@ -50,6 +50,7 @@ def render(
         steps.steps(review, "f_low") if verbose else Section(()),
         steps.methods_table(review, "f_low") if verbose else Section(()),
         poles.poles_and_zeros(review, verbose=verbose),
+        large_signal.large_signal(review, verbose=verbose),
         *(workings(review, [node]) for node in working if not verbose),
         changed.read_past(review) if verbose else Section(()),
         reasons.closing(review),
