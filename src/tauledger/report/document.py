@@ -27,8 +27,9 @@ from tauledger.report.sentences import (
     plain,
     sentence,
 )
+from tauledger.report.tables import at as frequencies
 from tauledger.report.tables import curve as measured
-from tauledger.report.tables import helps, large_signal, lower, outside, roots, setting, upper, way
+from tauledger.report.tables import helps, large_signal, lower, outside, phase, roots, setting, unity, upper, way
 from tauledger.report.tables.grid import Grid
 from tauledger.report.tables.working import Lines, working
 from tauledger.report.wording import EDGE, fraction, move, withheld
@@ -102,6 +103,9 @@ def document(review: Review) -> Document:
         _budget(review),
         _time(review),
         _shares(review),
+        _unity(review),
+        _at(review),
+        _peaking(review),
         _way(review),
         _bode(review),
         _causes(review),
@@ -113,6 +117,7 @@ def document(review: Review) -> Document:
         _stages(review),
         _devices(review),
         _roots(review),
+        _phase(review),
         _lines(review),
         _proof(review),
         _trust(review),
@@ -193,6 +198,33 @@ def _shares(review: Review) -> Section:
         "which hold at mid-band: between there and f_H the gain that multiplies a capacitance falls.",
     )
     return Section("shares", "Whose capacitance sets f_H", (picture, upper.shares(review)), ("Share", "Recomputed"))
+
+
+def _unity(review: Review) -> Section:
+    facts = review.f_unity
+    if facts is None or not facts.elements:
+        return Section("unity", "", ())
+    blocks: list[Block] = [unity.unity_gain(facts), unity.who_sets(facts)]
+    if facts.nodes:
+        blocks.append(unity.at_nodes(facts))
+    return Section("unity", "Unity gain", tuple(blocks), ("Unity gain, phase margin, gain margin", "Recomputed"))
+
+
+def _at(review: Review) -> Section:
+    if not review.at:
+        return Section("at", "", ())
+    grids = [frequencies.at_elements(one) for one in review.at if one.elements]
+    blocks: tuple[Block, ...] = (frequencies.gain_and_phase(review), *grids)
+    return Section("at", "Gain and phase at a frequency", blocks)
+
+
+def _peaking(review: Review) -> Section:
+    blocks: list[Block] = []
+    for one in review.peaking:
+        blocks.append(frequencies.peak(one))
+        if one.elements:
+            blocks.append(frequencies.peak_elements(one))
+    return Section("peaking", "Peaking", tuple(blocks), ("Recomputed",) if blocks else ())
 
 
 def _way(review: Review) -> Section:
@@ -276,7 +308,8 @@ def _curve(review: Review) -> Section:
 
 
 def _set(review: Review) -> Section:
-    return Section("set", "What was set", (outside.set_values(review),) if review.settings else ())
+    blocks = (outside.set_values(review),) if review.settings or review.added else ()
+    return Section("set", "What was changed" if review.added else "What was set", blocks)
 
 
 def _lower(review: Review) -> Section:
@@ -330,6 +363,10 @@ def _roots(review: Review) -> Section:
     )
     picture = (Picture("plane", caption),) if pairs else ()
     return Section("roots", "Poles and zeros", (*picture, roots.roots_table(review)))
+
+
+def _phase(review: Review) -> Section:
+    return Section("phase", "Phase used up at unity gain", phase.budget_grids(review))
 
 
 def _lines(review: Review) -> Section:

@@ -9,7 +9,21 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from tauledger.record import NodeRow, Review
-from tauledger.report import changed, curve, helps, large_signal, lower, paper, poles, reasons, steps, summary, upper
+from tauledger.report import (
+    at,
+    changed,
+    curve,
+    helps,
+    large_signal,
+    lower,
+    paper,
+    poles,
+    reasons,
+    steps,
+    summary,
+    unity,
+    upper,
+)
 from tauledger.report.layout import CAUTION, HEADING, STRONG, WARNING, Line, Section, lay_out
 from tauledger.report.working import workings
 
@@ -36,6 +50,8 @@ def render(
         reasons.warning(review),
         summary.headline(review),
         summary.band(review),
+        unity.unity_gain(review),
+        at.gain_and_phase(review, verbose=verbose),
         changed.changed(review),
         summary.operating_points(review, verbose=verbose),
         paper.own_page(review),
@@ -45,11 +61,14 @@ def render(
         steps.steps(review, "f_high"),
         steps.methods_table(review, "f_high") if verbose else Section(()),
         upper.upper_shares(review, verbose=verbose),
+        unity.who_sets(review, verbose=verbose),
+        at.peaking(review, verbose=verbose),
         helps.what_would_help(review) if verbose else Section(()),
         lower.lower_edge(review, verbose=verbose),
         steps.steps(review, "f_low") if verbose else Section(()),
         steps.methods_table(review, "f_low") if verbose else Section(()),
         poles.poles_and_zeros(review, verbose=verbose),
+        *_unity_budget(review),
         large_signal.large_signal(review, verbose=verbose),
         *(workings(review, [node]) for node in working if not verbose),
         changed.read_past(review) if verbose else Section(()),
@@ -57,6 +76,14 @@ def render(
     )
     lines = lay_out(sections, width=width, unicode=unicode, page=_PAGE)
     return _painted(lines) if color else "".join(f"{line.text}\n" for line in lines)
+
+
+def _unity_budget(review: Review) -> tuple[Section, ...]:
+    if review.phase_budget is None:
+        return ()
+    from tauledger.report import phase
+
+    return (phase.phase_used(review),)
 
 
 def _painted(lines: Sequence[Line]) -> str:

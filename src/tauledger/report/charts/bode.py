@@ -6,7 +6,7 @@ import math
 from collections.abc import Mapping
 from typing import TYPE_CHECKING, Any
 
-from tauledger.record import CurveFacts, Curves, Review
+from tauledger.record import CurveFacts, Curves, Review, UnityFacts
 from tauledger.report.charts.style import blank, light, styled, to_svg
 from tauledger.report.curve import place_text
 from tauledger.report.tables.roots import Root, near_roots
@@ -17,6 +17,8 @@ if TYPE_CHECKING:
 
 BELOW_DB = 70.0
 BEYOND = 300.0
+# So much is shown beyond f_u and below 0 dB where the report is about unity gain.
+BEYOND_UNITY, BELOW_UNITY_DB = 10.0, 20.0
 # Marks closer than this ratio have no room for both their names above them.
 NAME_NEEDS, NARROW_NEEDS = 1.8, 5.0
 DECIBEL = {"V/V": "dB", "A/A": "dB", "ohm": "dBΩ", "Ω": "dBΩ", "S": "dBS"}
@@ -72,6 +74,7 @@ def bode_chart(review: Review, *, narrow: bool = False) -> str:
             axes.grid(axis="both")
             axes.set_axisbelow(True)
         _edges(upper, lower, review, narrow=narrow)
+        _unity_gain(upper, lower, review, midband_deg)
         _roots(upper, near_roots(review), first, last, narrow=narrow)
         upper.legend(
             loc="lower left", bbox_to_anchor=(0.0, 1.0), ncols=1 if narrow else 3, frameon=False, borderpad=0.0
@@ -92,6 +95,8 @@ def _range(review: Review, curves: Curves) -> tuple[float, float]:
         first = max(first, places["f_H"] / 1e4)
     if "f_H" in places:
         last = min(last, places["f_H"] * BEYOND)
+    if _unity(review) is not None:
+        last = min(max(last, BEYOND_UNITY * _unity_hz(review)), curves.frequency_hz[-1])
     return (first, last) if first < last else (curves.frequency_hz[0], curves.frequency_hz[-1])
 
 
@@ -100,6 +105,8 @@ def _magnitude_range(review: Review, curves: Curves, shown: list[int]) -> tuple[
     values = [row[k] for row in drawn for k in shown]
     top = max(values)
     bottom = max(min(values), review.midband.gain_db - BELOW_DB)
+    if _unity(review) is not None:
+        bottom = max(min(values), min(bottom, -BELOW_UNITY_DB))
     room = 0.08 * (top - bottom) or 1.0
     return top + room, bottom - 3.2 * room
 
@@ -191,6 +198,39 @@ def _edges(upper: Axes, lower: Axes, review: Review, *, narrow: bool) -> None:
             ha="left" if name == "f_L" else "right",
             va="top",
         )
+
+
+def _unity(review: Review) -> UnityFacts | None:
+    """Give the facts on unity gain where the report has a section on it."""
+    return review.f_unity if review.f_unity is not None and review.f_unity.elements else None
+
+
+def _unity_hz(review: Review) -> float:
+    facts = _unity(review)
+    assert facts is not None
+    return facts.simulated_hz or facts.exact_hz or 0.0
+
+
+def _unity_gain(upper: Axes, lower: Axes, review: Review, midband_deg: float) -> None:
+    """Mark f_u at 0 dB, and the margin as the way from the phase there to half a turn beyond mid-band."""
+    facts = _unity(review)
+    if facts is None:
+        return
+    hz = _unity_hz(review)
+    margin = facts.phase_margin_deg if facts.phase_margin_deg is not None else facts.phase_margin_exact_deg
+    for axes in (upper, lower):
+        axes.axvline(hz, color=light("muted"), linewidth=1.0, linestyle=(0, (1, 2)))
+    upper.plot([hz], [0.0], marker="D", markersize=4.5, color=light("ink"), linestyle="none")
+    words: dict[str, Any] = {"textcoords": "offset points", "ha": "right", "va": "top"}
+    upper.annotate(f"f_u {number(hz, 'Hz')}", (hz, 0.0), (-7, -5), **words)
+    if margin is None:
+        return
+    half_turn = midband_deg - 180.0
+    low, high = lower.get_ylim()
+    lower.set_ylim(min(low, half_turn - 20.0), high)
+    lower.axhline(half_turn, color=light("muted"), linewidth=1.0, linestyle=(0, (1, 2)))
+    lower.plot([hz, hz], [half_turn, half_turn + margin], color=light("ink"), linewidth=2.2, solid_capstyle="butt")
+    lower.annotate(f"margin {margin:.1f}°", (hz, half_turn + margin / 2.0), (-7, 5), **words)
 
 
 def _roots(axes: Axes, roots: tuple[Root, ...], first: float, last: float, *, narrow: bool) -> None:

@@ -1,0 +1,126 @@
+"""Unity gain: f_u and its margins from three sources, who sets them, and what a picofarad at each node costs."""
+
+from __future__ import annotations
+
+from tauledger.record import Review, UnityElement, UnityFacts, UnityNode
+from tauledger.report.layout import Block, Prose, Row, Section, Table
+from tauledger.report.wording import NO_NUMBER, move, nominal, number, part_title
+
+_MOST_ELEMENTS, _MOST_NODES = 6, 4
+_BIAS, _DEVICE = "§", "¶"
+MARKS = f"{_BIAS} takes part in the operating point, and moves it; {_DEVICE} inside a device"
+
+
+def unity_gain(review: Review) -> Section:
+    """Give f_u, margins and gain-bandwidth product, simulated, exact and by hand, where they are what it is about."""
+    facts = review.f_unity
+    if facts is None or not facts.elements:
+        return Section(())
+    rows = tuple(Row(cells) for cells in figures(facts))
+    blocks: list[Block] = [Table("lrrr", ("UNITY GAIN", "simulated", "exact", "by hand"), rows)]
+    blocks += [Prose(remark, lead="  ") for remark in remarks(facts)]
+    return Section(tuple(blocks), major=True)
+
+
+def who_sets(review: Review, *, verbose: bool = False) -> Section:
+    """Give what 10 % less of an element does to f_u and margin, the first two computed again, and 1 pF at each node."""
+    facts = review.f_unity
+    if facts is None or not facts.elements:
+        return Section(())
+    shown = facts.elements if verbose else facts.elements[:_MOST_ELEMENTS]
+    rows: list[Row] = []
+    for one in shown:
+        rows.append(Row(element_cells(one)))
+        if one.f_unity_rerun_hz is not None:
+            rows.append(Row(("  recomputed", *again_cells(one, facts))))
+    head = ("WHO SETS f_u AND MARGIN: 10 % less of", "value", "f_u", "margin", "gain margin")
+    blocks: list[Block] = [Table("lrrrr", head, tuple(rows))]
+    if any(not one.free for one in shown):
+        blocks.append(Prose(MARKS, lead="  "))
+    nodes = facts.nodes if verbose else facts.nodes[:_MOST_NODES]
+    if nodes:
+        at = tuple(Row(node_cells(node, facts)) for node in nodes)
+        blocks.append(Table("lrr", ("1 pF TO GROUND AT, recomputed", "f_u", "margin"), at))
+    return Section(tuple(blocks), major=True)
+
+
+def figures(facts: UnityFacts) -> tuple[tuple[str, str, str, str], ...]:
+    """Give the rows: what, simulated, exact, by hand with its difference."""
+    by_hand = NO_NUMBER if facts.hand_hz is None else f"{number(facts.hand_hz, 'Hz')} ({move(facts.difference)})"
+    rows = [
+        ("f_u", number(facts.simulated_hz, "Hz"), number(facts.exact_hz, "Hz"), by_hand),
+        ("phase margin", degrees(facts.phase_margin_deg), degrees(facts.phase_margin_exact_deg), ""),
+    ]
+    if facts.gain_margin_db is not None or facts.gain_margin_exact_db is not None:
+        rows.append(("gain margin", decibels(facts.gain_margin_db), decibels(facts.gain_margin_exact_db), ""))
+        at = (number(facts.gain_margin_at_hz, "Hz"), number(facts.gain_margin_exact_at_hz, "Hz"))
+        rows.append(("  phase at -180°", *at, ""))
+    product = (number(facts.gain_bandwidth_hz, "Hz"), number(facts.gain_bandwidth_exact_hz, "Hz"))
+    rows.append(("gain · f_H", *product, ""))
+    return tuple(rows)
+
+
+def remarks(facts: UnityFacts) -> tuple[str, ...]:
+    """Say what the figures do not: how the hand figure is meant, no gain margin, instability, further crossings."""
+    said = []
+    if facts.hand_hz is not None:
+        said.append("f_u by hand: mid-band gain times f_H by hand, as one pole alone has it.")
+    margin = facts.phase_margin_deg if facts.phase_margin_deg is not None else facts.phase_margin_exact_deg
+    if margin is not None and margin <= 0.0:
+        said.append("No margin is left: closed around with a gain of 1 it is unstable.")
+    if facts.gain_margin_exact_db is None:
+        said.append("No gain margin: the phase never reaches -180° beyond mid-band.")
+    if facts.further_hz:
+        places = ", ".join(number(hz, "Hz") for hz in facts.further_hz)
+        said.append(f"|H| is 1 again at {places}: the margin at f_u alone does not tell whether a loop is stable.")
+    return tuple(said)
+
+
+def element_cells(one: UnityElement) -> tuple[str, str, str, str, str]:
+    """Give an element with its value and what 10 % less of it does to f_u, margin and gain margin, to first order."""
+    mark = "" if one.free else _BIAS if one.moves_bias else _DEVICE
+    value = nominal(one.value, one.unit) if one.name == one.owner else number(one.value, one.unit, 3)
+    gain_margin = NO_NUMBER if one.gain_margin_db is None else signed(-10.0 * one.gain_margin_db, " dB")
+    return (
+        part_title(one.name, one.owner) + mark,
+        value,
+        move(0.1 * one.f_unity),
+        signed(-10.0 * one.phase_margin_deg, "°"),
+        gain_margin,
+    )
+
+
+def again_cells(one: UnityElement, facts: UnityFacts) -> tuple[str, str, str, str]:
+    """Give the same element computed again: no value, f_u, margin, no gain margin."""
+    return "", _hz_move(one.f_unity_rerun_hz, facts), _margin_move(one.phase_margin_rerun_deg, facts), ""
+
+
+def node_cells(node: UnityNode, facts: UnityFacts) -> tuple[str, str, str]:
+    """Give a node with what 1 pF from it to ground does to f_u and margin, computed again."""
+    return node.title, _hz_move(node.one_picofarad_hz, facts), _margin_move(node.one_picofarad_margin_deg, facts)
+
+
+def _hz_move(hz: float | None, facts: UnityFacts) -> str:
+    return NO_NUMBER if hz is None or not facts.exact_hz else move(hz / facts.exact_hz - 1.0)
+
+
+def _margin_move(deg: float | None, facts: UnityFacts) -> str:
+    exact = facts.phase_margin_exact_deg
+    return NO_NUMBER if deg is None or exact is None else signed(deg - exact, "°")
+
+
+def degrees(deg: float | None) -> str:
+    """Write an angle to a tenth of a degree, a dash where there is none."""
+    return NO_NUMBER if deg is None else f"{deg:.1f}°"
+
+
+def decibels(db: float | None) -> str:
+    """Write a margin in decibel, a dash where there is none."""
+    return NO_NUMBER if db is None else f"{db:.2f} dB"
+
+
+def signed(value: float, unit: str) -> str:
+    """Write a change with its sign, to two digits below ten: "-1.9°", "+0.16 dB"."""
+    decimals = 2 if abs(value) < 0.995 else 1
+    text = f"{value:+.{decimals}f}"
+    return f"0.00{unit}" if float(text) == 0.0 else f"{text}{unit}"
