@@ -221,7 +221,7 @@ def _why_single(single: float, hz: float, roots: Sequence[HandRoot]) -> str:
         return ""
     ratio = abs(nearest.hz) / single
     where = "sits below it" if ratio < 1.0 else f"sits at {ratio:.2g} times it"
-    return f"{nearest.formula.name}, {engineering(abs(nearest.hz), 'Hz', 3)}, {where}"
+    return f"the {nearest.formula.name}, {engineering(abs(nearest.hz), 'Hz', 3)}, {where}"
 
 
 def _why_margin(off: float, rows: Sequence[PhaseRow]) -> str:

@@ -36,7 +36,7 @@ DOMINANT_POLE = Formula(
     f"{GRAY}, sec. 7.3.6 and 9.4.2",
 )
 SECOND_POLE = Formula(
-    "second pole, split",
+    "second pole",
     "gm2·C_c/(2π·(C1·C_L + C_c·(C1 + C_L)))",
     "A2 far above 1 and the poles far apart; C_c joins input and output of the stage there",
     f"{GRAY}, sec. 9.4.2 (eq. 9.33)",

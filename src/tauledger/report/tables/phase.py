@@ -1,0 +1,98 @@
+"""The phase budget at unity gain: degrees used by each pole and zero, exact and by hand; f_u and margin by hand."""
+
+from __future__ import annotations
+
+import math
+
+from tauledger.record import PhaseBudget, PhaseRow, Review, UnityStep
+from tauledger.report.tables.grid import Grid, GridRow, columns
+from tauledger.report.wording import NO_NUMBER, coefficients, move, number
+
+NOTHING_DEG = 0.05
+Cells = tuple[str, ...]
+
+
+def angle(value: float | None) -> str:
+    """Write an angle in degrees with one decimal: "23.5°"."""
+    if value is None:
+        return NO_NUMBER
+    return f"{value if abs(value) >= NOTHING_DEG else 0.0:.1f}°"
+
+
+def phase_budget(budget: PhaseBudget) -> Grid:
+    """Give the poles and zeros with what they use at f_u, those too small to show together, and what is left."""
+    *above, left = budget_cells(budget)
+    rows = [*(GridRow(cells) for cells in above), GridRow(left, "sum")]
+    heads = columns("", "exact", "used", "by hand", "off", "used, by hand")
+    note = "; ".join(f"{name}: {text}" for name, text in formulas(budget))
+    stage = f"Stage: {budget.stage}. " if budget.stage else ""
+    return Grid(f"Phase used up at {number(budget.at_hz, 'Hz', 4)}", heads, tuple(rows), f"{stage}{note}")
+
+
+def by_hand(budget: PhaseBudget) -> Grid:
+    """Give f_u and phase margin by hand beside exact."""
+    rows = tuple(GridRow(step_cells(step)) for step in budget.by_hand)
+    reasons = "; ".join(f"{step.figure}: {why}" for step, why in step_reasons(budget))
+    return Grid("Unity gain by hand", columns("", "by hand", "exact", "off"), rows, reasons)
+
+
+def budget_cells(budget: PhaseBudget) -> tuple[Cells, ...]:
+    """Give the cells of every row: name, exact Hz, degrees used, Hz by hand, how far off, degrees by hand."""
+    rows: list[Cells] = [_cells(row) for row in budget.rows]
+    if budget.others:
+        others = "1 other" if budget.others == 1 else f"{budget.others} others together"
+        rows.append((others, "", angle(budget.others_deg), "", "", ""))
+    if abs(budget.rest_deg) >= NOTHING_DEG:
+        rows.append(("delay", "", angle(budget.rest_deg), "", "", ""))
+    rows.append(("left for the margin", "", angle(budget.margin_deg), "", "", ""))
+    return tuple(rows)
+
+
+def formulas(budget: PhaseBudget) -> tuple[tuple[str, str], ...]:
+    """Give name and formula, with its operands, of every row that has one."""
+    return tuple(
+        (row.name, ", ".join(filter(None, (coefficients(row.hand_formula), row.hand_values))))
+        for row in budget.rows
+        if row.hand_formula
+    )
+
+
+def step_cells(step: UnityStep) -> Cells:
+    """Give the cells of one figure by hand: what, by hand, exact, how far off."""
+    if step.unit == "Hz":
+        by_paper, exact = number(step.hand, "Hz", 4), number(step.exact, "Hz", 4)
+        how = f"= {step.formula}" if step.values else "with the poles and zeros above"
+        return (f"{step.figure} {how}", by_paper, exact, move(step.hand / step.exact - 1.0))
+    return (step.figure, angle(step.hand), angle(step.exact), f"{step.hand - step.exact:+.1f}°")
+
+
+def step_reasons(budget: PhaseBudget) -> tuple[tuple[UnityStep, str], ...]:
+    """Give the figures by hand with their operands and the reason why they are off, where there is either."""
+    told = ((step, "; ".join(filter(None, (step.values, step.why)))) for step in budget.by_hand)
+    return tuple((step, text) for step, text in told if text)
+
+
+def budget_grids(review: Review) -> tuple[Grid, ...]:
+    """Give the tables of the phase budget, none where the review has none."""
+    budget = review.phase_budget
+    if budget is None:
+        return ()
+    return (phase_budget(budget), *((by_hand(budget),) if budget.by_hand else ()))
+
+
+def _cells(row: PhaseRow) -> Cells:
+    return (
+        _name(row),
+        number(math.hypot(row.real_hz, row.imag_hz), "Hz", 4),
+        angle(row.used_deg),
+        "" if row.hand_hz is None else number(abs(row.hand_hz), "Hz", 4),
+        "" if row.difference is None else move(row.difference),
+        "" if row.hand_deg is None else angle(row.hand_deg),
+    )
+
+
+def _name(row: PhaseRow) -> str:
+    """Name a row; a zero without a formula says on which side of the axis it lies."""
+    if row.kind == "zero" and not row.hand_formula:
+        return f"{row.name}, {'right' if row.real_hz > 0.0 else 'left'} half plane"
+    return row.name
