@@ -13,7 +13,6 @@ from tauledger.answers.stray_rerun import proven
 from tauledger.asked import MeasuredCurve
 from tauledger.network.midband import MidBand
 from tauledger.network.solve import Complex, Real, response
-from tauledger.numbers import Numbers
 from tauledger.record import (
     CurveFacts,
     CurveFigure,
@@ -98,7 +97,7 @@ def compare_curve(found: Review, subject: Subject, curve: MeasuredCurve) -> Curv
         if at_deg is not None and beside.difference_deg is not None
         else None,
         largest_deg_at_hz=None if at_deg is None else float(frequency[at_deg]),
-        figures=_figures(beside, found, numbers, midband, level_db, run),
+        figures=_figures(beside, found, midband, level_db, run),
         leaves=_leaves(beside, midband),
         rms_db=before,
         fitted_points=int(fitted.sum()),
@@ -169,9 +168,7 @@ def _crossing(frequency: Real, inside: Real) -> float | None:
     return float(frequency[k - 1] * (frequency[k] / frequency[k - 1]) ** part)
 
 
-def _figures(
-    beside: _Beside, found: Review, numbers: Numbers, midband: MidBand, level_db: float, run: Run
-) -> tuple[CurveFigure, ...]:
+def _figures(beside: _Beside, found: Review, midband: MidBand, level_db: float, run: Run) -> tuple[CurveFigure, ...]:
     """Set the measured band edges and unity-gain frequency beside the simulated ones; those that the curve reaches."""
     figures = []
     edge_db = level_db - HALF_POWER_DB
@@ -182,7 +179,7 @@ def _figures(
     if found.midband.unit in ("V/V", "A/A") and level_db > HALF_POWER_DB:
         unity = _falls_below(beside, midband, 0.0, run, upwards=True)
         if unity is not None:
-            figures.append(CurveFigure("f_unity", unity, _unity(numbers)))
+            figures.append(CurveFigure("f_unity", unity, _unity(found)))
     return tuple(figures)
 
 
@@ -210,13 +207,11 @@ def _reference_hz(edge: EdgeFacts | None) -> float | None:
     return edge.simulated_hz if edge.simulated_hz is not None else edge.exact_hz
 
 
-def _unity(numbers: Numbers) -> float | None:
-    if numbers.simulated is not None:
-        frequency, h = numbers.simulated.sweep.frequency_hz, numbers.simulated.sweep.response
-    else:
-        frequency, h = numbers.edges.frequency_hz, numbers.edges.response
-    above = frequency >= numbers.midband.frequency_hz
-    return _crossing(frequency[above], decibels(h[above]))
+def _unity(found: Review) -> float | None:
+    facts = found.f_unity
+    if facts is None:
+        return None
+    return facts.simulated_hz if facts.simulated_hz is not None else facts.exact_hz
 
 
 def _verdict(before: float | None, strays: Sequence[StrayFacts], *, trusted: bool) -> str:

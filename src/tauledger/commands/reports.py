@@ -14,6 +14,7 @@ from tauledger.errors import ExitCode, InputError, NetlistError, TauledgerError
 from tauledger.report.progress import progress
 
 if TYPE_CHECKING:
+    from tauledger.asked import Asked
     from tauledger.record import Review
     from tauledger.report.index import Entry
 
@@ -46,6 +47,15 @@ def report_files(wanted: Sequence[str], *, netlists: int) -> tuple[list[Path], P
     if folder is not None:
         _make(folder)
     return files, folder
+
+
+def for_formats(asked: Asked, json_file: str | None, files: Sequence[Path], folder: Path | None) -> Asked:
+    """Add what only the page and JSON can show, where one of them is wanted."""
+    if json_file is None and folder is None and all(file.suffix.lower() != ".html" for file in files):
+        return asked
+    from msgspec.structs import replace
+
+    return replace(asked, miller=True)
 
 
 def write_report(target: Path, found: Review, tell: Callable[[str], None]) -> None:

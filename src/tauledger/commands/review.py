@@ -10,7 +10,7 @@ import click
 
 from tauledger.commands.console import can_show_symbols, colored, hertz, page_width, print_bytes, writable, write
 from tauledger.commands.questions import questions
-from tauledger.commands.reports import report_files, review_each, write_report
+from tauledger.commands.reports import for_formats, report_files, review_each, write_report
 from tauledger.errors import ExitCode, InputError
 from tauledger.report.progress import progress
 
@@ -29,7 +29,13 @@ _EXIT_CODES = (
 @click.command("review", short_help="Review one netlist, or several.", epilog=_EXIT_CODES)
 @click.argument("netlists", metavar="NETLIST...", nargs=-1, required=True)
 @click.option("--input", "drive", metavar="SRC", help="Drive source SRC with 1, all others with 0.")
-@click.option("--output", metavar="V", help="Take the response at: out, 'v(a,b)' or 'i(vload)'.")
+@click.option(
+    "--output",
+    "outputs",
+    metavar="V",
+    multiple=True,
+    help="Take the response at: out, 'v(a,b)' or 'i(vload)'; further ones get a row each.",
+)
 @click.option("--midband", metavar="HZ", help="Refer band edges to the gain at HZ, e.g. 10k.")
 @click.option("--json", "json_file", metavar="FILE", help="Write the review as JSON; '-': alone on standard output.")
 @click.option("--report", metavar="FILE", multiple=True, help="Write .html, .md or .csv; folder/: a page per netlist.")
@@ -45,6 +51,7 @@ _EXIT_CODES = (
     multiple=True,
     help="Set a .param, an element, model.parameter, X1.parameter or Q1.area.",
 )
+@click.option("--add", metavar="NODE=R,C", multiple=True, help="Add to ground: out=12p, out=10meg,12p; repeatable.")
 @click.option("--allow-include", "allow", metavar="DIR", multiple=True, help="Include files from DIR too; repeatable.")
 @click.option("--fold", metavar="INSTANCE", multiple=True, help="Show a subcircuit instance as one part; none: no one.")
 @questions
@@ -52,7 +59,7 @@ _EXIT_CODES = (
 def review_command(
     netlists: tuple[str, ...],
     drive: str | None,
-    output: str | None,
+    outputs: tuple[str, ...],
     midband: str | None,
     json_file: str | None,
     report: tuple[str, ...],
@@ -62,12 +69,15 @@ def review_command(
     paper: str | None,
     working: tuple[str, ...],
     settings: tuple[str, ...],
+    add: tuple[str, ...],
     allow: tuple[str, ...],
     fold: tuple[str, ...],
     verbose: bool,
     asked: Asked,
 ) -> ExitCode:
     """Review the amplifier in NETLIST: does paper agree with the simulation, where not, and why?"""
+    from msgspec.structs import replace
+
     if "-" in netlists:
         raise InputError("the netlist must be a file", "files that it includes are looked up beside it")
     if not timeout > 0.0:
@@ -77,9 +87,13 @@ def review_command(
         raise InputError(f"--json {json_file}: one document holds one review", "give one netlist")
     if paper is not None and len(netlists) > 1:
         raise InputError(f"--paper {paper}: one page is for one netlist", "give one netlist")
+    if asked.curve is not None and len(netlists) > 1:
+        raise InputError(f"--curve {asked.curve.path}: one curve is for one netlist", "give one netlist")
+    asked = replace(asked, outputs=outputs[1:])
     page = None if paper is None else _page(paper)
     target = None if json_file in (None, "-") else writable("--json", Path(str(json_file)))
     files, folder = report_files(report, netlists=len(netlists)) if report else ([], None)
+    asked = for_formats(asked, json_file, files, folder)
 
     def one(netlist: str) -> Review:
         from tauledger.engine.client import start_engine
@@ -92,10 +106,11 @@ def review_command(
                 netlist,
                 engine=engine,
                 drive=drive,
-                output=output,
+                output=outputs[0] if outputs else None,
                 midband_hz=midband_hz,
                 page=page,
                 settings=settings,
+                add=add,
                 allow=allow,
                 fold=fold,
                 asked=asked,

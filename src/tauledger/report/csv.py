@@ -17,13 +17,27 @@ import msgspec
 from tauledger.record import Review
 
 HEADER = ("table", "name", "quantity", "value", "unit")
-LEFT_OUT = ("curves",)
+LEFT_OUT = ("curves", "miller", "loop_curves")
 UNITS = {
     "hz": "Hz", "s": "s", "ohm": "ohm", "f": "F", "farad": "F", "db": "dB", "deg": "degree", "c": "degree Celsius",
 }  # fmt: skip
 PER_FARAD = "Hz/F"
 # What tells the rows of a table apart; rows without any of these are counted.
-IDENTITY = ("edge", "method", "step", "name", "source", "node", "part", "symbol", "cause", "note", "file", "line")
+IDENTITY = (
+    "loop",
+    "edge",
+    "method",
+    "step",
+    "name",
+    "source",
+    "node",
+    "part",
+    "symbol",
+    "cause",
+    "note",
+    "file",
+    "line",
+)
 # A spreadsheet takes a cell that begins so for a formula.
 FORMULA = ("=", "+", "-", "@", "\t", "\r")
 
