@@ -58,6 +58,7 @@ def review(
     library: str | None = None,
     page: Page | None = None,
     settings: Sequence[str] = (),
+    add: Sequence[str] = (),
     allow: Sequence[str | Path] = (),
     fold: Sequence[str] = (),
     asked: Asked = NOTHING_ASKED,
@@ -70,6 +71,7 @@ def review(
     for the netlist's own hints. midband_hz: reference frequency in Hz, None to find the plateau.
     page: the designer's own figures, of `paper.page.read_page`, to be set beside hand and exact.
     settings: "R3=4.7k", "load=2k", "nsmall.bf=100": set beyond `change`, and the headline is told before and after.
+    add: "out=12p", "out=10meg,12p": resistance and capacitance from a node to ground, told before and after likewise.
     allow: folders beside the netlist's own from which files may be included.
     fold: subcircuit instances to be taken as one part each, beside macromodels; "none": leave all open.
     asked: what is asked beyond the band edges.
@@ -86,16 +88,18 @@ def review(
                 change=change,
                 page=page,
                 settings=settings,
+                add=add,
                 allow=allow,
                 fold=fold,
                 asked=asked,
             )
     netlist = read(path, allow=allow)
     before: Review | None = None
-    if settings:
+    if settings or add:
+        from tauledger.netlist.added import added
         from tauledger.netlist.settings import change_of
 
-        setting = change_of(netlist, settings)
+        setting = joined(change_of(netlist, settings), added(netlist, add))
         unset = solve(netlist, change, engine, drive=drive, output=output, midband_hz=midband_hz, fold=fold)
         before = compose(unset, explain(unset), netlist=netlist)
         change = joined(change, setting)
@@ -103,9 +107,10 @@ def review(
     explanation = explain(numbers)
     found = compose(numbers, explanation, netlist=netlist)
     if before is not None:
-        from tauledger.compose.changed import moved_figures, set_values
+        from tauledger.compose.changed import added_parts, moved_figures, set_values
 
-        found = replace(found, settings=set_values(setting), moved=moved_figures(before, found))
+        moved = moved_figures(before, found)
+        found = replace(found, settings=set_values(setting), added=added_parts(setting), moved=moved)
     if page is not None:
         found = _with_page(found, page, numbers, explanation)
     return answer(found, Subject(numbers, explanation, netlist, change, engine), asked)

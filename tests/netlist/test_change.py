@@ -98,7 +98,7 @@ def test_a_model_parameter_is_set_or_added_in_one_instance(netlist: Netlist) -> 
 
 def test_loads_are_added_between_nodes_and_stand_on_no_card(netlist: Netlist) -> None:
     circuit = elaborate(netlist, Change(loads=(Load("C", "X1.b", "0", 12e-12), Load("R", "OUT", "gnd", 1e6))))
-    assert circuit.passives.name[-2:] == ("Cload1", "Rload1")
+    assert circuit.passives.name[-2:] == ("C added at X1.b", "R added at out")
     assert circuit.passives.kind[-2:] == "CR"
     assert [circuit.nodes[node] for node in circuit.passives.a[-2:]] == ["X1.b", "out"]
     assert circuit.passives.b[-2:].tolist() == [0, 0]

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from tauledger.circuit import Change
-from tauledger.record import EdgeFacts, MovedFigure, Review, SetValue
+from tauledger.record import AddedPart, EdgeFacts, MovedFigure, Review, SetValue
 
 
 def set_values(change: Change) -> tuple[SetValue, ...]:
@@ -13,10 +13,18 @@ def set_values(change: Change) -> tuple[SetValue, ...]:
     return tuple(SetValue(name, value) for name, value in named)
 
 
+def added_parts(change: Change) -> tuple[AddedPart, ...]:
+    """List what a change adds from a node to ground."""
+    return tuple(AddedPart(load.plus, load.kind, load.value) for load in change.loads)
+
+
+DECIBELS = {"Ω": "dBΩ", "S": "dBS"}
+
+
 def moved_figures(before: Review, after: Review) -> tuple[MovedFigure, ...]:
     """Set the figures of the headline side by side, mid-band and both edges; what neither has is left out."""
     rows = [
-        MovedFigure("gain", "dB", before.midband.gain_db, after.midband.gain_db),
+        MovedFigure("gain", DECIBELS.get(after.midband.unit, "dB"), before.midband.gain_db, after.midband.gain_db),
         MovedFigure("plateau from", "Hz", before.midband.from_hz, after.midband.from_hz),
         MovedFigure("plateau to", "Hz", before.midband.to_hz, after.midband.to_hz),
     ]

@@ -10,7 +10,7 @@ scopes, conditions               parameters and functions, `.if`
 elements, passive, sources, controlled, models, bins, letters    what places and keywords mean
 flatten, bulk, instances, lookup, surroundings, references, draft    instances → the flat circuit
 ports, hints                     drive and output
-writer, hierarchy, origin, settings    the flat deck, the tree, where a value came from, NAME=VALUE
+writer, hierarchy, origin, settings, added    the flat deck, the tree, where a value came from, NAME=VALUE
 
 Messages are made in diagnostics. Only reader touches files; no text of a netlist leaves this room except names.
 """

@@ -309,10 +309,12 @@ def _add_loads(draft: Draft, change: Change, currents: dict[str, Port]) -> None:
         if load.value < 0.0 or (load.kind == "R" and load.value == 0.0):
             raise InputError(f"a load of {load.value:g} is not possible", "give a value greater than 0")
         port = parse_port(f"v({load.plus},{load.minus})", draft.nodes, currents)
+        ends = port.plus if port.minus == GROUND else f"{port.plus}, {port.minus}"
+        name = f"{load.kind} added at {ends}"
         number = 1
-        while fold(f"{load.kind}load{number}") in draft.taken:
+        while fold(name) in draft.taken:
             number += 1
-        name = f"{load.kind}load{number}"
+            name = f"{load.kind} added at {ends}, {number}"
         draft.taken[fold(name)] = ADDED
         a, b = draft.numbers[fold(port.plus)], draft.numbers[fold(port.minus)]
         draft.rows.append(Row(load.kind, name, a, b, load.value, ADDED, 0))

@@ -134,6 +134,8 @@ def _distinct(names: Iterator[str] | tuple[str, ...] | list[str]) -> tuple[str, 
     written = []
     for name in names:
         plain = name if name.isascii() else "".join(c if c.isascii() else f"_u{ord(c):04x}" for c in name)
+        # a part that a Change added has blanks in its name
+        plain = plain.replace(", ", "_").replace(" ", "_")
         while fold(plain) in taken:
             plain += "_"
         taken.add(fold(plain))

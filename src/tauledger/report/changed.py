@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from tauledger.record import MovedFigure, Review
 from tauledger.report.layout import HEADING, Block, Prose, Row, Section, Table
-from tauledger.report.wording import NO_NUMBER, move, number
+from tauledger.report.wording import NO_NUMBER, move, nominal, number, part_unit
 
 # Simulated edges are refined to this.
 _STANDS_STILL = 1e-6
@@ -12,20 +12,43 @@ _STANDS_STILL = 1e-6
 
 def changed(review: Review) -> Section:
     """Give the figures that move, before and after; empty where nothing was set."""
-    if not review.settings:
+    if not review.settings and not review.added:
         return Section(())
-    told = ", ".join(f"{setting.name} = {setting.value:.6g}" for setting in review.settings)
     moved = [figure for figure in review.moved if not same(figure)]
     still = [figure.figure for figure in review.moved if same(figure)]
     rows = tuple(
         Row((figure.figure, shown(figure, figure.before), shown(figure, figure.after), by(figure))) for figure in moved
     )
-    blocks: list[Block] = [Prose(f"SET {told}", style=HEADING)]
+    blocks: list[Block] = []
+    if review.settings:
+        blocks.append(Prose(f"SET {set_text(review)}", style=HEADING))
+    if review.added:
+        blocks.append(Prose(f"ADDED {added_text(review)}", style=HEADING))
     if rows:
-        blocks.append(Table("lrrr", ("figure", "as in the netlist", "as set", "change"), rows))
+        blocks.append(Table("lrrr", ("figure", "as in the netlist", so(review), "change"), rows))
     if still:
         blocks.append(Prose(", ".join(still), lead="  unchanged: "))
     return Section(tuple(blocks))
+
+
+def set_text(review: Review) -> str:
+    """Say what was set: "R3 = 4700, load = 2000"."""
+    return ", ".join(f"{setting.name} = {setting.value:.6g}" for setting in review.settings)
+
+
+def added_text(review: Review) -> str:
+    """Say what was added: "at out 10 MΩ ‖ 12 pF, at b 1 pF"."""
+    at: dict[str, list[str]] = {}
+    for part in review.added:
+        at.setdefault(part.node, []).append(nominal(part.value, part_unit(part.kind)))
+    return ", ".join(f"at {node} {' ‖ '.join(values)}" for node, values in at.items())
+
+
+def so(review: Review) -> str:
+    """Head the column of figures after the change."""
+    if review.settings and review.added:
+        return "as changed"
+    return "as set" if review.settings else "with it"
 
 
 def read_past(review: Review) -> Section:
@@ -47,8 +70,8 @@ def shown(figure: MovedFigure, value: float | None) -> str:
     """Write a value of a figure with its unit."""
     if value is None:
         return NO_NUMBER
-    if figure.unit == "dB":
-        return f"{value:.2f} dB"
+    if figure.unit.startswith("dB"):
+        return f"{value:.2f} {figure.unit}"
     return f"{value:+.1f}°" if figure.unit == "deg" else number(value, figure.unit)
 
 
@@ -56,7 +79,7 @@ def by(figure: MovedFigure) -> str:
     """Word the change: in dB and degrees as a difference, else in per cent."""
     if figure.before is None or figure.after is None:
         return NO_NUMBER
-    if figure.unit in ("dB", "deg"):
+    if figure.unit.startswith("d"):
         sign = f"{figure.after - figure.before:+.2f}"
-        return f"{sign} dB" if figure.unit == "dB" else f"{figure.after - figure.before:+.1f}°"
+        return f"{sign} dB" if figure.unit.startswith("dB") else f"{figure.after - figure.before:+.1f}°"
     return move(figure.after / figure.before - 1.0) if figure.before else NO_NUMBER

@@ -26,6 +26,7 @@ from tauledger.report.sentences import (
     note_text,
     plain,
     sentence,
+    unity_shown,
 )
 from tauledger.report.tables import at as frequencies
 from tauledger.report.tables import curve as measured
@@ -254,6 +255,8 @@ def _bode(review: Review) -> Section:
         caption += " Squares: the measured curve at the level of the simulation."
         if review.curve.strays:
             caption += " Dotted: ngspice with the stray capacitance that explains it best."
+    if unity_shown(review):
+        caption += " A dotted line stands at f_u too; the bar on it is the phase margin."
     return Section("bode", "Frequency response", (Picture("bode", caption),), ("Pole, zero",))
 
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from tauledger.record import MovedFigure, Review
-from tauledger.report.changed import by, same, shown
+from tauledger.report.changed import added_text, by, same, set_text, shown, so
 from tauledger.report.paper import AGREES, figure_title
 from tauledger.report.tables.grid import Grid, GridRow, columns
 from tauledger.report.wording import move, number, retitled
@@ -37,15 +37,19 @@ def verdicts(review: Review) -> tuple[tuple[str, str], ...]:
 
 def set_values(review: Review) -> Grid:
     """Give the figures that move with what was set, before and after."""
-    told = ", ".join(f"{setting.name} = {setting.value:.6g}" for setting in review.settings)
+    told = []
+    if review.settings:
+        told.append(f"Set from outside: {set_text(review)}")
+    if review.added:
+        told.append(f"Added: {added_text(review)}")
     rows = tuple(
         GridRow((figure.figure, shown(figure, figure.before), shown(figure, figure.after), by(figure)))
         for figure in review.moved
         if not _reads_the_same(figure)
     )
     still = ", ".join(figure.figure for figure in review.moved if _reads_the_same(figure))
-    heads = columns("Figure", "as in the netlist", "as set", "change")
-    return Grid(f"Set from outside: {told}", heads, rows, f"Unchanged: {still}." if still else "")
+    heads = columns("Figure", "as in the netlist", so(review), "change")
+    return Grid(". ".join(told), heads, rows, f"Unchanged: {still}." if still else "")
 
 
 def _reads_the_same(figure: MovedFigure) -> bool:
