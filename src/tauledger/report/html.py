@@ -26,7 +26,7 @@ if TYPE_CHECKING:
 _MINUS = re.compile(r"(?<![\w.⁻-])-(?=\d)")
 # The symbols of the trade, not the names of the user: "f_H", "C_μ", "r_π", "R_E", but not "v_in".
 _SYMBOL = re.compile(
-    r"(?<![\w.])(d?[CIVRrfgQ]|G(?=_m))_(H|L|T|C|D|E|B|G|S|CE|DS|GS|Th|o|b|e|c|s|d|m|π|μ|bx|be|bc|ds|gs|gd|sb|db|gb|mb|sub)"
+    r"(?<![\w.])(d?[CIVRrfgQ]|G(?=_m))_(H|L|T|u|C|D|E|B|G|S|CE|DS|GS|Th|o|b|e|c|s|d|m|π|μ|bx|be|bc|ds|gs|gd|sb|db|gb|mb|sub)"
     r"(?!\w)"
 )
 _COEFFICIENT = re.compile(r"\b([ab])([₁₂])")

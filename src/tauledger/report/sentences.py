@@ -13,6 +13,7 @@ from tauledger.report.tables.helps import change, kind
 from tauledger.report.tables.setting import output_text
 from tauledger.report.tables.upper import counting_nodes, places, term_seconds, whole_s
 from tauledger.report.tables.way import method_title
+from tauledger.report.unity import decibels, degrees, margins, signed
 from tauledger.report.wording import (
     AGREEMENT_WARNS,
     EDGE,
@@ -98,6 +99,10 @@ def key_figures(review: Review) -> tuple[KeyFigure, ...]:
         )
     ]
     for label, edge in (("Lower edge f_L", review.f_low), ("Upper edge f_H", review.f_high)):
+        if edge is None and label.startswith("Lower") and unity_shown(review):
+            # the band begins at DC; how it ends for a loop is what is asked of such an amplifier
+            figures.append(_unity_figure(review))
+            continue
         if edge is None:
             reaches = label.startswith("Lower") and midband.from_hz == 0.0
             figures.append(KeyFigure(label, "none", "the gain holds down to DC" if reaches else "no fall of 3 dB"))
@@ -131,6 +136,8 @@ def answers(review: Review) -> tuple[Answer, ...]:
     lower = _what_sets_the_lower_edge(review)
     if lower:
         told.append(Answer("What sets the lower edge?", lower))
+    if unity_shown(review):
+        told.append(Answer("Is it stable, closed around with a gain of 1?", _is_it_stable(review)))
     agrees = _does_paper_agree(review)
     if agrees:
         told.append(Answer("Does paper agree?", agrees))
@@ -139,6 +146,42 @@ def answers(review: Review) -> tuple[Answer, ...]:
         told.append(Answer("What would help most?", helps))
     told.append(Answer("Can it be believed?", believed(review)))
     return tuple(told)
+
+
+def unity_shown(review: Review) -> bool:
+    """Whether the report has a section on unity gain."""
+    return review.f_unity is not None and bool(review.f_unity.elements)
+
+
+def _unity_figure(review: Review) -> KeyFigure:
+    facts = review.f_unity
+    assert facts is not None
+    hz = facts.simulated_hz if facts.simulated_hz is not None else facts.exact_hz
+    margin, gain_margin = margins(facts)
+    beside = f"phase margin {degrees(margin)}"
+    if gain_margin is not None:
+        beside += f", gain margin {decibels(gain_margin)}"
+    return KeyFigure("Unity gain f_u", number(hz, "Hz"), beside)
+
+
+def _is_it_stable(review: Review) -> str:
+    """Say what is left of the phase, and what moves that most."""
+    facts = review.f_unity
+    assert facts is not None
+    margin, gain_margin = margins(facts)
+    hz = facts.simulated_hz if facts.simulated_hz is not None else facts.exact_hz
+    said = f"{degrees(margin)} of phase are left at {number(hz, 'Hz')}"
+    if gain_margin is not None:
+        said += f"; where all of it is used up the gain is {decibels(gain_margin)} below 1"
+    if margin is not None and margin <= 0.0:
+        said = f"No: the phase is {degrees(-margin)} beyond half a turn at {number(hz, 'Hz')}"
+    cards = [one for one in facts.elements if one.free]
+    if cards:
+        most = max(cards, key=lambda one: abs(one.phase_margin_deg))
+        of = part_title(most.name, most.owner)
+        change = signed(-10.0 * most.phase_margin_deg, "°")
+        said += f"; 10 % less of {of} changes the margin by {change} and f_u by {move(0.1 * most.f_unity)}"
+    return f"{said}."
 
 
 def drive_sentence(review: Review) -> str:

@@ -54,7 +54,7 @@ def figures(facts: UnityFacts) -> tuple[tuple[str, str, str, str], ...]:
     if facts.gain_margin_db is not None or facts.gain_margin_exact_db is not None:
         rows.append(("gain margin", decibels(facts.gain_margin_db), decibels(facts.gain_margin_exact_db), ""))
         at = (number(facts.gain_margin_at_hz, "Hz"), number(facts.gain_margin_exact_at_hz, "Hz"))
-        rows.append(("  phase at -180°", *at, ""))
+        rows.append(("  -180° reached at", *at, ""))
     product = (number(facts.gain_bandwidth_hz, "Hz"), number(facts.gain_bandwidth_exact_hz, "Hz"))
     rows.append(("gain · f_H", *product, ""))
     return tuple(rows)
@@ -65,7 +65,7 @@ def remarks(facts: UnityFacts) -> tuple[str, ...]:
     said = []
     if facts.hand_hz is not None:
         said.append("f_u by hand: mid-band gain times f_H by hand, as one pole alone has it.")
-    margin = facts.phase_margin_deg if facts.phase_margin_deg is not None else facts.phase_margin_exact_deg
+    margin, _ = margins(facts)
     if margin is not None and margin <= 0.0:
         said.append("No margin is left: closed around with a gain of 1 it is unstable.")
     if facts.gain_margin_exact_db is None:
@@ -74,6 +74,13 @@ def remarks(facts: UnityFacts) -> tuple[str, ...]:
         places = ", ".join(number(hz, "Hz") for hz in facts.further_hz)
         said.append(f"|H| is 1 again at {places}: the margin at f_u alone does not tell whether a loop is stable.")
     return tuple(said)
+
+
+def margins(facts: UnityFacts) -> tuple[float | None, float | None]:
+    """Give phase margin in degrees and gain margin in dB: simulated, or exact where nothing was simulated."""
+    if facts.simulated_hz is None:
+        return facts.phase_margin_exact_deg, facts.gain_margin_exact_db
+    return facts.phase_margin_deg, facts.gain_margin_db
 
 
 def element_cells(one: UnityElement) -> tuple[str, str, str, str, str]:
