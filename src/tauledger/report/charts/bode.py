@@ -6,19 +6,22 @@ import math
 from collections.abc import Mapping
 from typing import TYPE_CHECKING, Any
 
-from tauledger.record import CurveFacts, Curves, Review, UnityFacts
+from tauledger.record import Review
 from tauledger.report.charts.style import blank, light, styled, to_svg
 from tauledger.report.curve import place_text
+from tauledger.report.shown import Shown, edge_places, midband_deg, nearest, shown, turns_deg, unity_hz
 from tauledger.report.tables.roots import Root, near_roots
 from tauledger.report.wording import number
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
+    from matplotlib.figure import Figure
 
 BELOW_DB = 70.0
-BEYOND = 300.0
-# So much is shown beyond f_u and below 0 dB where the report is about unity gain.
-BEYOND_UNITY, BELOW_UNITY_DB = 10.0, 20.0
+SOLID: Mapping[str, Any] = {"linewidth": 1.6}
+LOOKS: Mapping[str, Mapping[str, Any]] = {"hand": {"linestyle": (0, (5, 2)), "linewidth": 1.5}}
+# So much is shown below 0 dB where the report is about unity gain.
+BELOW_UNITY_DB = 20.0
 # Marks closer than this ratio have no room for both their names above them.
 NAME_NEEDS, NARROW_NEEDS = 1.8, 5.0
 DECIBEL = {"V/V": "dB", "A/A": "dB", "ohm": "dBΩ", "Ω": "dBΩ", "S": "dBS"}
@@ -26,41 +29,18 @@ DECIBEL = {"V/V": "dB", "A/A": "dB", "ohm": "dBΩ", "Ω": "dBΩ", "S": "dBS"}
 
 def bode_chart(review: Review, *, narrow: bool = False) -> str:
     """Draw magnitude and phase as SVG; empty where there are no curves."""
-    curves = review.curves
-    if curves is None or len(curves.frequency_hz) < 2:
+    seen = shown(review)
+    if seen is None:
         return ""
-    first, last = _range(review, curves)
+    first, last = seen.first_hz, seen.last_hz
     with styled():
         figure = blank(5.2, narrow=narrow)
         upper, lower = figure.subplots(2, 1, sharex=True, height_ratios=(1.35, 1.0))
-        lines = (
-            (
-                "hand",
-                "by hand, a pole for each node",
-                curves.hand_db,
-                curves.hand_deg,
-                {"linestyle": (0, (5, 2)), "linewidth": 1.5},
-            ),
-            (
-                "exact",
-                "exact",
-                curves.exact_db if curves.simulated_db is None else None,
-                curves.exact_deg,
-                {"linewidth": 1.6},
-            ),
-            ("simulated", "simulated", curves.simulated_db, curves.simulated_deg, {"linewidth": 1.6}),
-        )
-        shown = [k for k, f in enumerate(curves.frequency_hz) if first <= f <= last]
-        frequency = [curves.frequency_hz[k] for k in shown]
-        at = _nearest(curves, review.midband.frequency_hz)
-        midband_deg = _midband_deg(review)
-        for name, label, magnitude, phase, look in lines:
-            if magnitude is None or phase is None:
-                continue
-            turns = 360.0 * round((midband_deg - phase[at]) / 360.0)
-            upper.plot(frequency, [magnitude[k] for k in shown], color=light(name), label=label, **look)
-            lower.plot(frequency, [phase[k] + turns for k in shown], color=light(name), **look)
-        top, bottom = _magnitude_range(review, curves, shown)
+        for curve in seen.curves:
+            look: Mapping[str, Any] = {"color": light(curve.name), **LOOKS.get(curve.name, SOLID)}
+            upper.plot(seen.frequency_hz, curve.magnitude_db, label=curve.label, **look)
+            lower.plot(seen.frequency_hz, curve.phase_deg, **look)
+        top, bottom = _magnitude_range(review, seen)
         _measured(upper, lower, review, first, last)
         upper.set_xscale("log")
         upper.set_xlim(first, last)
@@ -74,47 +54,33 @@ def bode_chart(review: Review, *, narrow: bool = False) -> str:
             axes.grid(axis="both")
             axes.set_axisbelow(True)
         _edges(upper, lower, review, narrow=narrow)
-        _unity_gain(upper, lower, review, midband_deg)
+        _unity_gain(upper, lower, review)
         _roots(upper, near_roots(review), first, last, narrow=narrow)
         upper.legend(
             loc="lower left", bbox_to_anchor=(0.0, 1.0), ncols=1 if narrow else 3, frameon=False, borderpad=0.0
         )
-        told = ", ".join(f"{name} at {number(hz, 'Hz')}" for name, hz in _edge_places(review))
-        return to_svg(
-            figure, key="bode", title=f"Magnitude and phase over frequency; {told or 'no band edges'}", narrow=narrow
-        )
+        told = ", ".join(f"{name} at {number(hz, 'Hz')}" for name, hz in edge_places(review))
+        title = f"Magnitude and phase over frequency; {told or 'no band edges'}"
+        svg = to_svg(figure, key="bode", title=title, narrow=narrow)
+        return svg.replace("<svg ", f'<svg data-axes="{_place(figure, upper, lower)}" ', 1)
 
 
-def _range(review: Review, curves: Curves) -> tuple[float, float]:
-    """Show the band with room around it rather than every decade of the sweep."""
-    first, last = curves.frequency_hz[0], curves.frequency_hz[-1]
-    places = dict(_edge_places(review))
-    if "f_L" in places:
-        first = max(first, places["f_L"] / BEYOND)
-    elif "f_H" in places:
-        first = max(first, places["f_H"] / 1e4)
-    if "f_H" in places:
-        last = min(last, places["f_H"] * BEYOND)
-    if _unity(review) is not None:
-        last = min(max(last, BEYOND_UNITY * _unity_hz(review)), curves.frequency_hz[-1])
-    return (first, last) if first < last else (curves.frequency_hz[0], curves.frequency_hz[-1])
+def _place(figure: Figure, upper: Axes, lower: Axes) -> str:
+    """Give left, right, top and bottom of both axes together in the picture's own units, for the frequency cursor."""
+    width, height = (72.0 * inches for inches in figure.get_size_inches())
+    above, below = upper.get_position(), lower.get_position()
+    places = (above.x0 * width, above.x1 * width, (1.0 - above.y1) * height, (1.0 - below.y0) * height)
+    return " ".join(f"{place:.2f}" for place in places)
 
 
-def _magnitude_range(review: Review, curves: Curves, shown: list[int]) -> tuple[float, float]:
-    drawn = [row for row in (curves.simulated_db, curves.exact_db, curves.hand_db) if row is not None]
-    values = [row[k] for row in drawn for k in shown]
+def _magnitude_range(review: Review, seen: Shown) -> tuple[float, float]:
+    values = [level for curve in seen.curves for level in curve.magnitude_db]
     top = max(values)
     bottom = max(min(values), review.midband.gain_db - BELOW_DB)
-    if _unity(review) is not None:
+    if unity_hz(review) is not None:
         bottom = max(min(values), min(bottom, -BELOW_UNITY_DB))
     room = 0.08 * (top - bottom) or 1.0
     return top + room, bottom - 3.2 * room
-
-
-def _nearest(curves: Curves, hz: float) -> int:
-    """Give the place of the frequency next to `hz`, where phases are brought to the same turn."""
-    wanted = hz or curves.frequency_hz[0]
-    return min(range(len(curves.frequency_hz)), key=lambda k: abs(math.log(curves.frequency_hz[k] / wanted)))
 
 
 def _measured(upper: Axes, lower: Axes, review: Review, first: float, last: float) -> None:
@@ -140,19 +106,9 @@ def _measured(upper: Axes, lower: Axes, review: Review, first: float, last: floa
         upper.plot(frequency, level, label=label, **dotted)
     by_phase = [(point.reference_deg, point.difference_deg) for point in points if point.difference_deg is not None]
     if by_phase and review.curves is not None:
-        turns = 360.0 * round((_midband_deg(review) - _nearest_deg(review, curve)) / 360.0)
+        middle = nearest(tuple(point.frequency_hz for point in curve.points), review.midband.frequency_hz)
+        turns = turns_deg(review, curve.points[middle].reference_deg)
         lower.plot(frequency, [degrees + off + turns for degrees, off in by_phase], **look)
-
-
-def _midband_deg(review: Review) -> float:
-    gain = complex(review.midband.gain_real, review.midband.gain_imag)
-    return math.degrees(math.atan2(gain.imag, gain.real))
-
-
-def _nearest_deg(review: Review, curve: CurveFacts) -> float:
-    """Give the phase of the reference at the point next to mid-band, by which its turns are counted."""
-    wanted = review.midband.frequency_hz or curve.points[0].frequency_hz
-    return min(curve.points, key=lambda point: abs(math.log(point.frequency_hz / wanted))).reference_deg
 
 
 def _degrees(axes: Axes) -> None:
@@ -173,17 +129,8 @@ def _hertz(axes: Axes, *, most: int) -> None:
     axes.xaxis.set_major_formatter(FuncFormatter(lambda hz, _: number(hz, "Hz", 1)))
 
 
-def _edge_places(review: Review) -> list[tuple[str, float]]:
-    places = []
-    for name, edge in (("f_L", review.f_low), ("f_H", review.f_high)):
-        hz = None if edge is None else edge.simulated_hz if edge.simulated_hz is not None else edge.exact_hz
-        if hz is not None:
-            places.append((name, hz))
-    return places
-
-
 def _edges(upper: Axes, lower: Axes, review: Review, *, narrow: bool) -> None:
-    for name, hz in _edge_places(review):
+    for name, hz in edge_places(review):
         for axes in (upper, lower):
             axes.axvline(hz, color=light("muted"), linewidth=1.0, linestyle=(0, (1, 2)))
         level = review.midband.gain_db - 20.0 * math.log10(math.sqrt(2.0))
@@ -200,23 +147,11 @@ def _edges(upper: Axes, lower: Axes, review: Review, *, narrow: bool) -> None:
         )
 
 
-def _unity(review: Review) -> UnityFacts | None:
-    """Give the facts on unity gain where the report has a section on it."""
-    return review.f_unity if review.f_unity is not None and review.f_unity.elements else None
-
-
-def _unity_hz(review: Review) -> float:
-    facts = _unity(review)
-    assert facts is not None
-    return facts.simulated_hz or facts.exact_hz or 0.0
-
-
-def _unity_gain(upper: Axes, lower: Axes, review: Review, midband_deg: float) -> None:
+def _unity_gain(upper: Axes, lower: Axes, review: Review) -> None:
     """Mark f_u at 0 dB, and the margin as the way from the phase there to half a turn beyond mid-band."""
-    facts = _unity(review)
-    if facts is None:
+    facts, hz = review.f_unity, unity_hz(review)
+    if facts is None or hz is None:
         return
-    hz = _unity_hz(review)
     margin = facts.phase_margin_deg if facts.phase_margin_deg is not None else facts.phase_margin_exact_deg
     for axes in (upper, lower):
         axes.axvline(hz, color=light("muted"), linewidth=1.0, linestyle=(0, (1, 2)))
@@ -225,7 +160,7 @@ def _unity_gain(upper: Axes, lower: Axes, review: Review, midband_deg: float) ->
     upper.annotate(f"f_u {number(hz, 'Hz')}", (hz, 0.0), (-7, -5), **words)
     if margin is None:
         return
-    half_turn = midband_deg - 180.0
+    half_turn = midband_deg(review) - 180.0
     low, high = lower.get_ylim()
     lower.set_ylim(min(low, half_turn - 20.0), high)
     lower.axhline(half_turn, color=light("muted"), linewidth=1.0, linestyle=(0, (1, 2)))
