@@ -27,7 +27,7 @@ class Isolation(Struct, frozen=True):
     that it refers to, A (n_references,). frequency_hz: where, Hz (n_freq,). inner: suffixes of ngspice's inner nodes to
     record ("collCX"); those that the instance does not have are left out. parameters: instance parameters set
     otherwise than on its card. each_node: every place of a node on the card is a terminal of its own, even where two
-    are one node; voltages are in that order then.
+    are one node; voltages are in that order then. driven: which terminals, by place, where not all are needed.
     """
 
     element: str
@@ -37,15 +37,17 @@ class Isolation(Struct, frozen=True):
     inner: tuple[str, ...] = ()
     parameters: tuple[tuple[str, float], ...] = ()
     each_node: bool = False
+    driven: tuple[int, ...] = ()
 
 
 class Samples(Struct, frozen=True):
     """What one instance alone answered.
 
     terminals: names of the circuit's nodes (n_terminals,). frequency_hz: (n_freq,). admittance: current into terminal i
-    per volt on terminal j, S (n_freq, n_terminals, n_terminals). current_gain: current into terminal i per ampere
-    through the source referred to, A/A (n_freq, n_terminals, n_references). inner: suffixes of the inner nodes that
-    exist (n_inner,). inner_gain: their voltage per volt on terminal j, V/V (n_freq, n_inner, n_terminals).
+    per volt on terminal j, S (n_freq, n_terminals, n_terminals), NaN where j was not driven. current_gain: current into
+    terminal i per ampere through the source referred to, A/A (n_freq, n_terminals, n_references). inner: suffixes of
+    the inner nodes that exist (n_inner,). inner_gain: their voltage per volt on terminal j, V/V (n_freq, n_inner,
+    n_terminals).
     """
 
     element: str

@@ -58,6 +58,18 @@ def test_the_loaded_circuit_is_swept_after_a_measurement(engine: Engine) -> None
     assert np.array_equal(engine.sweep(GRID).response, before)
 
 
+def test_terminals_that_are_not_driven_answer_to_those_that_are(engine: Engine) -> None:
+    """One of them at 0 V is ground itself; its current is what the others leave."""
+    circuit = preamp()
+    every, shifted = (Isolation("Q1", (5.0 + v, 0.65 + v, v), tuple(GRID.tolist())) for v in (0.0, 1.0))
+    whole = engine.isolate(circuit, every).admittance
+    for volts in (every.voltages, shifted.voltages):
+        some = engine.isolate(circuit, Isolation("Q1", volts, every.frequency_hz, driven=(1,)))
+        assert np.allclose(some.admittance[:, :, 1], whole[:, :, 1], rtol=1e-9, atol=1e-16)
+        assert np.all(np.isnan(some.admittance[:, :, [0, 2]]))
+        assert some.current_gain.shape == (len(GRID), 3, 0)
+
+
 def test_parameters_can_be_set_otherwise(engine: Engine) -> None:
     circuit = preamp()
     bias = engine.bias(circuit, observations(circuit))

@@ -6,7 +6,7 @@ c_db, c_sb, c_ds, and three transcapacitances: c_m = C_dg − C_gd and c_mb = C_
 gate and body, and c_mx = C_bg − C_gb, that into the body by the gate. In reverse, drain and source are exchanged in it,
 not in junctions and overlap.
 Overlap depends on the bias. Newer versions of ngspice tell it; for others the instance is measured alone, without its
-series resistances, and what its charge has beyond the readings is the overlap.
+series resistances, and what its gate moves into the other terminals beyond the readings is the overlap.
 
 Source: Tsividis and McAndrew, "Operation and Modeling of the MOS Transistor", 3rd ed., 2011, chapters 6 and 7
 (capacitances and transcapacitances of the complete quasi-static model).
@@ -16,8 +16,6 @@ from __future__ import annotations
 
 import math
 from collections.abc import Mapping
-
-import numpy as np
 
 from tauledger.circuit import Circuit, Element, Model
 from tauledger.devices.bsim3_parameters import MODEL_PARAMETERS as BSIM3_PARAMETERS
@@ -34,6 +32,7 @@ READINGS = (
 OVERLAP = ("cgso", "cgdo", "cgbo")
 # Without inner nodes the instance is exactly G + s·C, so that one frequency tells C; here rounding matters least.
 ISOLATED_HZ = 1e9
+GATE = 1
 
 # What makes an instance more than its readings tell, with the words for it; nonzero is on.
 IMPACT = ("alpha0", "alpha1", "lalpha0", "walpha0", "palpha0", "lalpha1", "walpha1", "palpha1")
@@ -78,7 +77,7 @@ def _isolate(circuit: Circuit, element: Element, bias: Bias) -> Isolation | None
     sign = -1.0 if is_p(circuit.model(element.model).type) else 1.0
     volts = (sign * read["vds"], sign * read["vgs"], 0.0, sign * read["vbs"])
     without_resistance = (("nrd", 0.0), ("nrs", 0.0))
-    return Isolation(element.name, volts, (ISOLATED_HZ,), parameters=without_resistance, each_node=True)
+    return Isolation(element.name, volts, (ISOLATED_HZ,), parameters=without_resistance, each_node=True, driven=(GATE,))
 
 
 def _linearise(circuit: Circuit, element: Element, bias: Bias) -> Device:
@@ -150,21 +149,18 @@ def _charges(
 
 
 def _overlap(element: Element, bias: Bias) -> dict[str, float]:
-    """Give the overlap capacitances in F, read, or measured: what the gate's charge has beyond the readings."""
+    """Give the overlap capacitances in F, read, or measured: what the gate's charge moves beyond the readings."""
     read = readings_of(bias, element)
     if all(name in read for name in OVERLAP):
         return {name: read[name] for name in OVERLAP}
     samples = bias.samples[element.name]
-    charge = np.asarray(samples.admittance[0].imag / (2.0 * math.pi * samples.frequency_hz[0]))
-    gate_drain, gate_source = read["cgd"], read["cgs"]
+    of_drain, _, of_source, of_body = (
+        float(siemens) / (2.0 * math.pi * samples.frequency_hz[0]) for siemens in samples.admittance[0, :, GATE].imag
+    )
+    drain_gate, source_gate = read["cdg"], -(read["cgg"] + read["cdg"] + read["cbg"])
     if read["vds"] < 0.0:
-        gate_drain, gate_source = gate_source, gate_drain
-    gate_body = -(read["cgg"] + read["cgd"] + read["cgs"])
-    return {
-        "cgso": float(gate_source - charge[1, 2]),
-        "cgdo": float(gate_drain - charge[1, 0]),
-        "cgbo": float(gate_body - charge[1, 3]),
-    }
+        drain_gate, source_gate = source_gate, drain_gate
+    return {"cgso": source_gate - of_source, "cgdo": drain_gate - of_drain, "cgbo": read["cbg"] - of_body}
 
 
 def _series_conductance(element: Element, model: Model, squares: str) -> float:

@@ -13,6 +13,7 @@ from tauledger.devices.fitted import FITTED
 from tauledger.devices.gummel_poon import GUMMEL_POON
 from tauledger.devices.jfet import LEVEL_1 as JFET_1
 from tauledger.devices.jfet import LEVEL_2 as JFET_2
+from tauledger.devices.lines import LOSSLESS_LINE, LOSSY_LINE
 from tauledger.devices.meyer import LEVEL_1 as MOS_1
 from tauledger.devices.meyer import LEVEL_2 as MOS_2
 from tauledger.devices.meyer import LEVEL_3 as MOS_3
@@ -39,6 +40,8 @@ FAMILIES: tuple[Family, ...] = (
     COUPLING,
     VOLTAGE_SWITCH,
     CURRENT_SWITCH,
+    LOSSLESS_LINE,
+    LOSSY_LINE,
     GUMMEL_POON,
     DIODE,
     MOS_1,
@@ -54,11 +57,15 @@ FAMILIES: tuple[Family, ...] = (
     *FITTED,
     *BEHAVIOURAL,
 )
+OF_LETTER = {
+    letter: tuple(family for family in FAMILIES if family.letter == letter)
+    for letter in {family.letter for family in FAMILIES}
+}
 
 
 def families_of(letter: str) -> tuple[Family, ...]:
     """Give the families of an element letter (either case), in the order in which they are asked."""
-    return tuple(family for family in FAMILIES if family.letter == letter.upper())
+    return OF_LETTER.get(letter.upper(), ())
 
 
 def family_of(letter: str) -> Family | None:

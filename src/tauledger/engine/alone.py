@@ -2,7 +2,8 @@
 
 Every terminal stands on a voltage source of its own, ground included; a source that the instance refers to carries a
 forced current. The engine is asked with unit AC on one of them after the other, of all instances at once: they do not
-touch each other.
+touch each other. Where only some terminals are driven, one of the others that stands at 0 V is ground itself, and its
+current what the others leave: a thousand sources less for a thousand transistors.
 """
 
 from __future__ import annotations
@@ -18,6 +19,7 @@ from tauledger.circuit import (
     GROUND,
     Apply,
     Circuit,
+    Drive,
     Element,
     Formula,
     Passives,
@@ -42,7 +44,8 @@ TOLD = 6
 class Alone(Struct, frozen=True):
     """One instance in the circuit of several: its name there, its terminals, and its sources.
 
-    terminals: names of the user's nodes. holders, forced: voltage sources at the terminals, forced currents.
+    terminals: names of the user's nodes. holders, forced: voltage sources at the terminals, forced currents. driven:
+    places of the terminals that are driven. grounded: place of the terminal without a holder, or None.
     """
 
     isolation: Isolation
@@ -50,11 +53,18 @@ class Alone(Struct, frozen=True):
     terminals: tuple[str, ...]
     holders: tuple[str, ...]
     forced: tuple[str, ...]
+    driven: tuple[int, ...]
+    grounded: int | None = None
+
+    @property
+    def held(self) -> tuple[int, ...]:
+        """Places of the terminals with a holder, in the order of the holders."""
+        return tuple(place for place in range(len(self.terminals)) if place != self.grounded)
 
     @property
     def sources(self) -> tuple[str, ...]:
         """What is driven, one after the other."""
-        return (*self.holders, *self.forced)
+        return (*(self.holders[self.held.index(place)] for place in self.driven), *self.forced)
 
 
 class Bench(Struct, frozen=True):
@@ -83,8 +93,9 @@ def bench(circuit: Circuit, isolations: Sequence[Isolation]) -> Bench:
     nodes = [GROUND]
     elements: list[Element] = []
     instances: list[Alone] = []
+    named = {fold(element.name): element for element in circuit.elements}
     for isolation in isolations:
-        element = next((e for e in circuit.elements if fold(e.name) == fold(isolation.element)), None)
+        element = named.get(fold(isolation.element))
         if element is None:
             raise EngineError(f"no element is called {isolation.element}")
         ends = element.nodes if isolation.each_node else terminals_of(element)
@@ -92,12 +103,13 @@ def bench(circuit: Circuit, isolations: Sequence[Isolation]) -> Bench:
             raise ValueError(
                 f"{element.name} has {len(ends)} terminals and {len(element.references)} controlling currents"
             )
+        grounded = _grounded(isolation)
         first = len(nodes)
-        number = {node: k for k, node in enumerate(ends, start=first)}
-        behind = first + len(ends)
-        held = [
-            _source("V", f"{element.name}'held{k}", (k, 0), volt) for k, volt in enumerate(isolation.voltages, first)
-        ]
+        places = [place for place in range(len(ends)) if place != grounded]
+        behind = first + len(places)
+        at = [0 if place == grounded else first + places.index(place) for place in range(len(ends))]
+        number = dict(zip(ends, at, strict=True))
+        held = [_source("V", f"{element.name}'held{at[k]}", (at[k], 0), isolation.voltages[k]) for k in places]
         forced = [
             _source("I", f"{element.name}'forced{k}", (0, k), ampere)
             for k, ampere in enumerate(isolation.currents, behind)
@@ -105,7 +117,7 @@ def bench(circuit: Circuit, isolations: Sequence[Isolation]) -> Bench:
         sensors = [_source("V", f"{element.name}'sensor{k}", (k, 0), 0.0) for k in range(behind, behind + len(forced))]
         instance = replace(
             element,
-            nodes=tuple(range(first, behind)) if isolation.each_node else tuple(number[node] for node in element.nodes),
+            nodes=tuple(at) if isolation.each_node else tuple(number[node] for node in element.nodes),
             formula=_renumbered(element.formula, number),
             references=tuple(sensor.name for sensor in sensors),
             parameters=tuple({**dict(element.parameters), **dict(isolation.parameters)}.items()),
@@ -119,6 +131,8 @@ def bench(circuit: Circuit, isolations: Sequence[Isolation]) -> Bench:
                 tuple(circuit.nodes[node] for node in ends),
                 tuple(source.name for source in held),
                 tuple(source.name for source in forced),
+                isolation.driven or tuple(range(len(ends))),
+                grounded,
             )
         )
     used = {element.model for element in elements}
@@ -129,7 +143,7 @@ def bench(circuit: Circuit, isolations: Sequence[Isolation]) -> Bench:
         passives=Passives("", (), nothing, nothing, np.array([], dtype=float), nothing, nothing),
         elements=tuple(elements),
         models=tuple(model for model in circuit.models if model.name in used),
-        drive=(),
+        drive=tuple(Drive(instance.sources[0], "voltage", 1.0) for instance in instances),
         output=Port(GROUND),
         temperature_c=circuit.temperature_c,
         tnom_c=circuit.tnom_c,
@@ -139,11 +153,14 @@ def bench(circuit: Circuit, isolations: Sequence[Isolation]) -> Bench:
 
 
 def question(asked: Bench) -> Message:
-    """Give the request to the worker: k-th source of every instance driven at once, one k after the other."""
+    """Give the request to the worker: k-th source of every instance driven at once, one k after the other.
+
+    The first is driven by the deck itself.
+    """
     vectors = [name for instance in asked.instances for name in _vectors(asked, instance)]
     most = max(len(instance.sources) for instance in asked.instances)
     driven = [[asked.made(i.sources[k]) for i in asked.instances if k < len(i.sources)] for k in range(most)]
-    grids = [(grid.points, grid.start_hz, grid.stop_hz) for grid in plan(asked.frequency_hz)]
+    grids = [(grid.points, grid.start_hz, grid.stop_hz, grid.count) for grid in plan(asked.frequency_hz)]
     return {"do": "isolate", "deck": asked.deck.text, "vectors": vectors, "grids": grids, "sources": driven}
 
 
@@ -193,25 +210,40 @@ def _column(run: Message, k: int) -> Complex:
 def samples(instance: Alone, frequency_hz: NDArray[np.float64], answers: Sequence[Complex]) -> Samples:
     """Put the answers of one instance to unit AC together.
 
-    answers: for each held terminal, then each forced current, the currents through the holders (from the terminal into
-    ground) and the inner nodes' voltages, (n_terminals + n_inner, n_freq); an inner node that does not exist is NaN.
+    answers: for each driven terminal, then each forced current, the currents through the holders (from the terminal
+    into ground) and the inner nodes' voltages, (n_holders + n_inner, n_freq); an inner node that does not exist is NaN.
     """
     isolation, n = instance.isolation, len(instance.terminals)
     driven = np.stack(answers, axis=-1).transpose(1, 0, 2)
+    if instance.grounded is not None:
+        left = -driven[:, : n - 1].sum(axis=1)
+        driven = np.insert(driven, instance.grounded, left, axis=1)
+    count, places = len(instance.driven), list(instance.driven)
     exists = [k for k in range(len(isolation.inner)) if not np.all(np.isnan(driven[:, n + k, 0]))]
-    found = Samples(
+    for array in (driven[:, :n], driven[:, [n + k for k in exists], :count]):
+        if not np.all(np.isfinite(array)):
+            raise EngineError(f"ngspice's AC response of {isolation.element} alone is not finite")
+    admittance = np.full((len(frequency_hz), n, n), np.nan + 0j)
+    inner_gain = np.full((len(frequency_hz), len(exists), n), np.nan + 0j)
+    admittance[:, :, places] = -driven[:, :n, :count]
+    inner_gain[:, :, places] = driven[:, [n + k for k in exists], :count]
+    return Samples(
         element=isolation.element,
         terminals=instance.terminals,
         frequency_hz=frequency_hz,
-        admittance=-driven[:, :n, :n],
-        current_gain=-driven[:, :n, n:],
+        admittance=admittance,
+        current_gain=-driven[:, :n, count:],
         inner=tuple(isolation.inner[k] for k in exists),
-        inner_gain=driven[:, [n + k for k in exists], :n],
+        inner_gain=inner_gain,
     )
-    for array in (found.admittance, found.current_gain, found.inner_gain):
-        if not np.all(np.isfinite(array)):
-            raise EngineError(f"ngspice's AC response of {isolation.element} alone is not finite")
-    return found
+
+
+def _grounded(isolation: Isolation) -> int | None:
+    """Give the place of the terminal that may be ground itself, where not all are driven."""
+    if not isolation.driven:
+        return None
+    rest = [k for k, volt in enumerate(isolation.voltages) if volt == 0.0 and k not in isolation.driven]
+    return rest[0] if rest else None
 
 
 def _source(letter: str, name: str, nodes: tuple[int, int], dc: float) -> Element:

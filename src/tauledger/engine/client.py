@@ -35,8 +35,10 @@ INSTALL_HINT = (
 INERT = "* nothing is set here\n"
 LOG = "worker.log"
 TELL_AT_MOST = 6
-# Instances measured in one run; what the answer weighs grows with their number times their inner nodes.
-TOGETHER = 50
+# Instances measured in one run: beyond this ngspice's own time per instance grows again.
+TOGETHER = 200
+# Complex numbers in one answer.
+ANSWER_SIZE = 200_000
 PACKAGE_ROOT = Path(__file__).resolve().parents[2]
 
 
@@ -173,7 +175,11 @@ class Engine:
         passives = circuit.passives
         branches = [name for name, kind in zip(passives.name, passives.kind, strict=True) if kind == "L"]
         branches += [element.name for element in circuit.elements if has_branch_current(element)]
-        devices = [(deck.elements[fold(o.element)], [*o.readings, *o.optional]) for o in observations]
+        models = {fold(element.name): fold(element.model) for element in circuit.elements}
+        devices = [
+            (deck.elements[fold(o.element)], list(o.readings), list(o.optional), models.get(fold(o.element), ""))
+            for o in observations
+        ]
         vectors = [*deck.nodes[1:], *(f"{deck.elements[fold(name)]}#branch" for name in branches)]
         answer = self._ask({"do": "bias", "deck": deck.text, "vectors": vectors, "readings": devices})
 
@@ -211,8 +217,9 @@ class Engine:
     def sweep(self, frequency_hz: NDArray[np.float64] | Sequence[float]) -> Sweep:
         """Solve the AC response of the loaded circuit's output at these frequencies (n_freq,) in Hz, in their order.
 
-        Any list will do. One that `grid.decades` laid out is a single run; any other is one run per frequency, exact
-        at the frequency asked. The sweep holds the engine's own frequencies, equal to those asked within 1e-9.
+        Any list will do. One that `grid.decades` or `grid.evenly` laid out is a single run; any other is one run per
+        frequency, exact at the frequency asked. The sweep holds the engine's own frequencies, equal to those asked
+        within 1e-9.
         Raises EngineError, EngineTimeout; ValueError where a frequency is not above zero or no circuit is loaded.
         """
         import numpy as np
@@ -251,9 +258,11 @@ class Engine:
         for isolation in isolations:
             groups.setdefault(isolation.frequency_hz, []).append(isolation)
         found: dict[str, Samples] = {}
-        for together in groups.values():
-            for first in range(0, len(together), TOGETHER):
-                some = together[first : first + TOGETHER]
+        for frequencies, together in groups.items():
+            most = max(len(i.driven or i.voltages) * (len(i.voltages) + len(i.inner)) for i in together)
+            count = min(TOGETHER, max(1, ANSWER_SIZE // (most * len(frequencies))))
+            for first in range(0, len(together), count):
+                some = together[first : first + count]
                 try:
                     found |= {answer.element: answer for answer in self._isolate(circuit, some)}
                 except EngineError:
@@ -287,7 +296,9 @@ class Engine:
             "save": self._displaced or not self._saved,
             "vectors": [name for name, _ in vectors],
         }
-        answers = self._ask({**request, "grids": [(g.points, g.start_hz, g.stop_hz) for g in grids]})["answers"]
+        answers = self._ask({**request, "grids": [(g.points, g.start_hz, g.stop_hz, g.count) for g in grids]})[
+            "answers"
+        ]
         self._saved, self._displaced = True, False
         frequency: list[np.ndarray] = []
         response: list[np.ndarray] = []

@@ -13,6 +13,7 @@ from msgspec import Struct
 
 from tauledger.circuit import Apply, Circuit, Element, Model, Number, fold
 from tauledger.devices.catalogue import FAMILIES, fitting
+from tauledger.devices.family import Family
 from tauledger.devices.polynomial import as_formula
 from tauledger.engine.formula import written
 from tauledger.errors import EngineError
@@ -60,8 +61,8 @@ def write_deck(circuit: Circuit, *, tight: bool = True) -> Deck:
             raise EngineError(f"{passives.name[k]} has no resistance: ngspice would put its own value there")
         cards.append(f"{name} {a} {b} {_number(value, passives.name[k])}")
     amplitudes = {fold(drive.source): drive.amplitude for drive in circuit.drive}
+    words = _Words({fold(model.name): model for model in circuit.models}, nodes, elements, models, amplitudes, {})
     for name, element in zip(generated[len(passives) :], circuit.elements, strict=True):
-        words = _Words(circuit, nodes, elements, models, amplitudes)
         cards.append(" ".join((name, *_behind_name(element, words))))
     cards += [_model(models[fold(model.name)], model) for model in circuit.models]
     if circuit.nodesets:
@@ -81,13 +82,27 @@ def write_deck(circuit: Circuit, *, tight: bool = True) -> Deck:
 
 
 class _Words(Struct, frozen=True):
-    """What the cards of a deck are made of: generated names of nodes, elements and models, and the AC amplitudes."""
+    """What the cards of a deck are made of: generated names of nodes, elements and models, and the AC amplitudes.
 
-    circuit: Circuit
+    cards, models: model card and generated name by the model's folded name. families: those found so far, by letter and
+    model.
+    """
+
+    cards: Mapping[str, Model]
     nodes: tuple[str, ...]
     elements: Mapping[str, str]
     models: Mapping[str, str]
     amplitudes: Mapping[str, complex]
+    families: dict[tuple[str, str], tuple[tuple[Family, ...], frozenset[str]]]
+
+    def families_of(self, element: Element, model: Model | None) -> tuple[tuple[Family, ...], frozenset[str]]:
+        """Give the families that fit to an element and the instance parameters that they know."""
+        key = (element.letter, element.model)
+        if key not in self.families:
+            found = fitting(element, model)
+            known = frozenset[str]().union(*(family.instance_parameters for family in found))
+            self.families[key] = (found, known)
+        return self.families[key]
 
 
 def has_branch_current(element: Element) -> bool:
@@ -113,12 +128,11 @@ def _options(circuit: Circuit, tight: bool) -> str:
 
 def _behind_name(element: Element, words: _Words) -> Iterable[str]:
     """Give what follows the name on an element's card: nodes, value or model, parameters."""
-    model = next((m for m in words.circuit.models if fold(m.name) == fold(element.model)), None)
-    families = fitting(element, model)
+    model = words.cards.get(fold(element.model)) if element.model else None
+    families, known = words.families_of(element, model)
     if not families:
         raise EngineError(f"{element.name} is of no family that the engine is given (model: {element.model or None})")
     parameters = families[0].as_written(element, model)
-    known = frozenset[str]().union(*(family.instance_parameters for family in families))
     if unknown := sorted({name for name, _ in parameters} - known):
         raise EngineError(f"{element.name}: parameter {unknown[0]} has no place in the engine's deck")
     given = {name: _number(value, element.name) for name, value in parameters}
