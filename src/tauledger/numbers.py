@@ -27,6 +27,7 @@ from tauledger.network.midband import MidBand, find_midband, frequency_range
 from tauledger.network.poles import PoleZeroMap, find_poles
 from tauledger.network.recompute import EdgeFrequencies, edge_frequencies, scaled
 from tauledger.network.solve import Complex, response
+from tauledger.network.transformers import drawn_out
 from tauledger.simulated import Simulated, simulate
 from tauledger.solution import Bias
 
@@ -104,6 +105,7 @@ def solve_network(network: Network, *, devices: tuple[Device, ...] = (), midband
 
     Raises NetworkError where the network has no unique solution.
     """
+    network = drawn_out(network)
     midband = find_midband(network, at_hz=midband_hz)
     return Numbers(
         network=network,

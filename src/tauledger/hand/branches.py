@@ -18,6 +18,7 @@ from tauledger.hand.figures import compact, plain
 from tauledger.hand.rules import Outside, Rule
 from tauledger.hand.rules.bipolar import BASE, COLLECTOR, EMITTER
 from tauledger.hand.rules.field_effect import DRAIN, SOURCE
+from tauledger.hand.rules.transformer import through_transformer_ohm
 from tauledger.hand.rules.two_terminal import (
     CONTROL_ON_COMMON,
     DIODE_BOTTOM,
@@ -115,8 +116,28 @@ def branches(circuit: EquivalentCircuit, node: str, without: frozenset[Element],
         if beyond.ohm:
             symbol = f"({symbol} + {bare(beyond.symbol)})" if beyond.terms == 1 else f"({symbol} + ({beyond.symbol}))"
         passive.append(Branch(resistor.name, resistor.ohm + beyond.ohm, symbol, "", far, resistor.ohm))
+    passive += [
+        branch
+        for k in circuit.transformers_at.get(node, ())
+        if ("T", k) not in skipped and (branch := _through_transformer(circuit, node, k, walk)) is not None
+    ]
     walk.path.pop()
     return [*passive, *found]
+
+
+def _through_transformer(circuit: EquivalentCircuit, node: str, k: int, walk: Walk) -> Branch | None:
+    """Give what lies at the other winding, by the square of the turns: n²·R, or R/n² looking into fewer turns."""
+    transformer = circuit.transformers[k]
+    assert transformer.live is not None
+    far = next(end for end in transformer.live if end != node)
+    beyond = outside(circuit, far, frozenset({("T", k)}), walk)
+    if math.isinf(beyond.ohm):
+        return None
+    n2 = transformer.turns_into(node) ** 2
+    within = beyond.symbol if beyond.terms == 1 else f"({beyond.symbol})"
+    symbol = f"{plain(n2)}·{within}" if n2 >= 1.0 else f"{within}/{plain(1.0 / n2)}"
+    detail = f"{transformer.name}: n² = {plain(max(n2, 1.0 / n2))}"
+    return Branch(transformer.name, through_transformer_ohm(transformer, node, beyond.ohm), symbol, detail)
 
 
 class Joint(Struct, frozen=True):
@@ -223,7 +244,7 @@ def _only_resistor(circuit: EquivalentCircuit, node: str, k: int) -> int | None:
     if node == GROUND or circuit.cells_at.get(node) != (k,):
         return None
     resistors = circuit.resistors_at.get(node, ())
-    return resistors[0] if len(resistors) == 1 else None
+    return resistors[0] if len(resistors) == 1 and node not in circuit.transformers_at else None
 
 
 def _unmuted(circuit: EquivalentCircuit, k: int, walk: Walk) -> Cell:

@@ -16,6 +16,7 @@ from tauledger.circuit import GROUND
 from tauledger.devices.family import Device
 from tauledger.devices.parts import Part
 from tauledger.network.assemble import Network
+from tauledger.network.transformers import REFLECTED, TURNS
 
 INTERNAL = ("g_pi", "g_o", "g_mu")
 WITHOUT_SIGNAL = ("substrate", "body")
@@ -85,6 +86,34 @@ class Capacitor(Struct, frozen=True):
     b: str
     farad: float
     mirrored: bool = False
+
+
+class Transformer(Struct, frozen=True):
+    """An ideal transformer between hand nodes: v(second) = turns·v(first), each from its first end to its second.
+
+    name: of the coupling's windings, "L1 : L2".
+    """
+
+    name: str
+    first: tuple[str, str]
+    second: tuple[str, str]
+    turns: float
+
+    @property
+    def live(self) -> tuple[str, str] | None:
+        """The end of either winding whose other end is at AC ground, None where a winding floats or is shorted."""
+        ends = [[node for node in winding if node != GROUND] for winding in (self.first, self.second)]
+        return (ends[0][0], ends[1][0]) if [len(end) for end in ends] == [1, 1] else None
+
+    @property
+    def ratio(self) -> float:
+        """Voltage from the live end of the first winding to that of the second, signed as the windings stand."""
+        same_way = (self.first[1] == GROUND) == (self.second[1] == GROUND)
+        return self.turns if same_way else -self.turns
+
+    def turns_into(self, node: str) -> float:
+        """Give the turns of the winding at this live end per turn of the other, signed."""
+        return 1.0 / self.ratio if self.live is not None and node == self.live[0] else self.ratio
 
 
 class TerminalAt(Struct, frozen=True):
@@ -189,6 +218,19 @@ def _inside(part: Part, cell: Cell, terminal: str, label: str, hand: Mapping[str
         return part.label == label
     live = GROUND not in (cell.common, terminal) and not cell.diode_connected
     return live and not part.label and {hand[node] for node in part.nodes} == {cell.common, terminal}
+
+
+def read_transformers(network: Network, hand: Mapping[str, str]) -> tuple[Transformer, ...]:
+    """Give every pair of windings that was drawn out as an ideal transformer."""
+    reflected = {part.owner: part for part in network.parts if part.label == REFLECTED}
+    found = []
+    for part in network.parts:
+        if part.kind == "voltage gain" and part.label == TURNS and part.owner in reflected:
+            second, first = (tuple(hand[node] for node in pair) for pair in (part.nodes[:2], part.nodes[2:]))
+            found.append(
+                Transformer(f"turns of {part.owner}", (first[0], first[1]), (second[0], second[1]), part.value)
+            )
+    return tuple(found)
 
 
 def read_resistors(network: Network, hand: Mapping[str, str], used: set[str]) -> tuple[Resistor, ...]:

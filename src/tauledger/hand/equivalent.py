@@ -24,9 +24,11 @@ from tauledger.hand.elements import (
     Cell,
     Resistor,
     TerminalAt,
+    Transformer,
     read_cells,
     read_resistors,
     read_terminals,
+    read_transformers,
 )
 from tauledger.network.assemble import Network
 from tauledger.network.bands import Bands
@@ -71,6 +73,8 @@ class EquivalentCircuit(Struct, frozen=True):
     row: Mapping[str, int]
     resistors_at: Mapping[str, tuple[int, ...]]
     cells_at: Mapping[str, tuple[int, ...]]
+    transformers: tuple[Transformer, ...] = ()
+    transformers_at: Mapping[str, tuple[int, ...]] = {}
 
     @property
     def constant(self) -> NDArray[np.float64]:
@@ -173,6 +177,7 @@ def equivalent_circuit(
         members.setdefault(h, []).append(node)
     cells, used = read_cells(network, hand, at, devices)
     resistors = read_resistors(network, hand, used)
+    transformers = read_transformers(network, hand)
     return EquivalentCircuit(
         at=at,
         driven=frozenset(node for node, upper in merged.items() if upper in moved),
@@ -201,6 +206,8 @@ def equivalent_circuit(
         row={node: k for k, node in enumerate(nodes)},
         resistors_at=adjacency([(r.a, r.b) for r in resistors]),
         cells_at=adjacency([(c.control, c.common, c.output) for c in cells]),
+        transformers=transformers,
+        transformers_at=adjacency([t.live or () for t in transformers]),
     )
 
 

@@ -125,6 +125,8 @@ def _hops(circuit: EquivalentCircuit, node: str) -> Iterator[_Hop]:
                 yield _Hop(("Q", k), node, end)
     for k in circuit.resistors_at.get(node, ()):
         yield _Hop(("R", k), node, circuit.resistors[k].other(node))
+    for k in circuit.transformers_at.get(node, ()):
+        yield from (_Hop(("T", k), node, end) for end in circuit.transformers[k].live or () if end != node)
 
 
 def _along(circuit: EquivalentCircuit, start: str, chain: tuple[_Hop, ...]) -> tuple[float, str]:
@@ -136,6 +138,9 @@ def _along(circuit: EquivalentCircuit, start: str, chain: tuple[_Hop, ...]) -> t
         kind, k = hop.element
         if kind == "R":
             factor, line = _through_resistor(circuit, k, hop, walk)
+        elif kind == "T":
+            factor = circuit.transformers[k].turns_into(hop.end)
+            line = f"{circuit.transformers[k].name} = {plain(factor)}"
         else:
             factor, line = _through_cell(circuit, k, hop, walk)
         if walk.left < 0:

@@ -38,10 +38,10 @@ def find_mirror(circuit: EquivalentCircuit) -> Mirror | None:
     """Give the halves of a circuit whose nodes move in opposite phase, the half of the output's plus node first.
 
     None where the drive is not balanced, an element crosses to another node than its own image, the halves differ by
-    more than 1e-6, or capacitors set the gain (their circuit is complex, and taken whole).
+    more than 1e-6, a transformer is in it, or capacitors set the gain (their circuit is complex, and taken whole).
     """
     plus = circuit.output_hand[0]
-    if plus == GROUND or circuit.floating or circuit.s_mid:
+    if plus == GROUND or circuit.floating or circuit.s_mid or circuit.transformers:
         return None
     opposite = _opposite(circuit)
     if opposite is None or plus not in opposite or opposite[plus] == plus:

@@ -204,5 +204,6 @@ def _elements(circuit: EquivalentCircuit, node: str) -> tuple[str, ...]:
         for r in resistors
         if 1.0 / r.ohm >= least
     ]
+    named += [circuit.transformers[k].name for k in circuit.transformers_at.get(node, ())]
     cells = [circuit.cells[k].owner for k in circuit.cells_at.get(node, ())]
     return (*dict.fromkeys(named + cells),)

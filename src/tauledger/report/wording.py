@@ -11,9 +11,10 @@ from tauledger.record import DeviceFacts, Owner, PartRow, Review
 
 _UNITS = {"ohm": "Ω"}
 _GREEK = {"pi": "π", "mu": "μ", "tau": "τ", "beta": "β"}
+_LABELS = {"cexbc": "dQ_be/dV_bc", "rc": "R·C"}
 _RATIOS = ("", "V/V", "A/A")
 _PART_UNIT = {"capacitance": "F", "transcapacitance": "F", "inductance": "H", "C": "F", "L": "H", "R": "Ω"}
-_PART_UNIT |= {"mutual inductance": "H"}
+_PART_UNIT |= {"mutual inductance": "H", "line": "s"}
 
 # A coefficient stands after or before a fraction bar, after a product or a root, or in a phrase; a node of that name
 # does not.
@@ -44,18 +45,18 @@ def nominal(value: float, unit: str) -> str:
 
 
 def amount(part: PartRow) -> str:
-    """Write a part's value: as on the schematic where it is a card of its own, with three digits else.
+    """Write a part's value: as on the schematic where it is a card of its own or a line, with three digits else.
 
     The remainder of a fitted device is no single value: a dash.
     """
     if part.kind == "block":
         return NO_NUMBER
     unit = part_unit(part.kind)
-    return nominal(part.value, unit) if part.owner == part.name else number(part.value, unit, 3)
+    return nominal(part.value, unit) if part.owner == part.name or part.kind == "line" else number(part.value, unit, 3)
 
 
 def part_unit(kind: str) -> str:
-    """Give the unit of a part's value: F, H or Ω."""
+    """Give the unit of a part's value: F, H, Ω or s."""
     return _PART_UNIT[kind]
 
 
@@ -86,6 +87,8 @@ def symbol(label: str) -> str:
         return f"{head.upper()}_{tail.upper()}"
     if head == "c":
         return f"C_{tail}"
+    if head == "l":
+        return f"L_{tail}"
     if head == "f":
         return f"f_{tail.upper()}"
     return f"{head}_{tail}"
@@ -109,8 +112,8 @@ def part_title(name: str, owner: str) -> str:
         return name
     if label == "inside":
         return f"inside {owner}"
-    if label == "cexbc":
-        return f"dQ_be/dV_bc of {owner}"
+    if label in _LABELS:
+        return f"{_LABELS[label]} of {owner}"
     return f"{symbol(label)} of {owner}"
 
 
@@ -144,6 +147,11 @@ def withheld(review: Review) -> str:
     if review.budget.upper is None:
         return "Hand tables are left out: the notes below say why."
     return ""
+
+
+def group_delay(review: Review) -> str:
+    """Name what the weighted sum equals: the sums know lines as at DC alone."""
+    return "group delay without lines" if any(part.kind == "line" for part in review.parts) else "group delay"
 
 
 AGREEMENT_WARNS = 1e-6

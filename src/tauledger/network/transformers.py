@@ -1,0 +1,71 @@
+"""Two closely coupled inductors drawn as what a transformer is on paper: leakage, magnetising inductance, ideal turns.
+
+With M = k·√(L1·L2) the pair is exactly: L1·(1 − k²) in series with the first winding, k²·L1 across it behind that, and
+an ideal transformer of 1 : n with n = L2/M = √(L2/L1)/k. What a pair of windings does to a band is then in single
+parts: the magnetising inductance makes a lower edge, the leakage an upper one, and their shares do not cancel.
+
+Source: Terman, "Radio Engineers' Handbook", 1943, section 2 (equivalent circuits of coupled coils; from memory).
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterable
+
+from tauledger.circuit import fold
+from tauledger.devices.family import inner_node
+from tauledger.devices.parts import Part, current_gain, inductance, voltage_gain
+from tauledger.network.assemble import Network, assemble
+
+# Below, as between two tuned circuits, nobody thinks in leakage and turns.
+CLOSE = 0.9
+NO_LEAKAGE = 1e-9
+MAGNETISING, LEAKAGE, TURNS, REFLECTED = "l_m", "l_leak", "turns", "reflected"
+
+
+def drawn_out(network: Network) -> Network:
+    """Give the same network with every two windings of k ≥ 0.9 drawn as leakage, magnetising inductance and turns.
+
+    Windings that are coupled with more than one other, or whose current is the output or is sensed, stay as they are.
+    """
+    pairs = _pairs(network)
+    if not pairs:
+        return network
+    gone = {name for _, _, names in pairs for name in names}
+    kept = [part for part in network.parts if part.name not in gone]
+    for coupling, ends, _ in pairs:
+        kept += _drawn(coupling, *ends)
+    return assemble(tuple(kept), network.port, network.amplitudes)
+
+
+def _pairs(network: Network) -> list[tuple[Part, tuple[Part, Part], tuple[str, ...]]]:
+    """Give the first mutual inductance of every close pair, its two windings, and the names of all that it replaces."""
+    mutual = [part for part in network.parts if part.kind == "mutual inductance"]
+    windings = {fold(part.owner): part for part in network.parts if part.kind == "inductance"}
+    times: dict[str, int] = {}
+    for part in mutual:
+        times[fold(part.references[0])] = times.get(fold(part.references[0]), 0) + 1
+    busy = {fold(name) for part in network.parts if part.kind != "mutual inductance" for name in part.references}
+    busy |= {fold(network.port.through)} if network.port.kind == "current" else set()
+    found = []
+    for part in mutual:
+        first, second = (fold(owner) for owner in part.references)
+        if part.label != "m_12" or {first, second} & busy or times[first] != 1 or times[second] != 1:
+            continue
+        one, two = windings[first], windings[second]
+        if part.value**2 >= CLOSE**2 * one.value * two.value > 0.0:
+            names = (one.name, two.name, *(other.name for other in mutual if other.owner == part.owner))
+            found.append((part, (one, two), names))
+    return found
+
+
+def _drawn(coupling: Part, one: Part, two: Part) -> Iterable[Part]:
+    (a, b), (c, d) = one.nodes, two.nodes
+    k2 = coupling.value**2 / (one.value * two.value)
+    n = two.value / coupling.value
+    behind = a
+    if 1.0 - k2 > NO_LEAKAGE:
+        behind = inner_node(one.owner, "m")
+        yield inductance(coupling.owner, a, behind, one.value * (1.0 - k2), label=LEAKAGE)
+    yield inductance(one.owner, behind, b, one.value * k2, label=MAGNETISING)
+    yield voltage_gain(two.owner, (c, d), (behind, b), n, label=TURNS)
+    yield current_gain(two.owner, behind, b, -n, two.owner, label=REFLECTED)
