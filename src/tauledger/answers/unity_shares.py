@@ -1,0 +1,103 @@
+"""Who sets unity gain and margin, the first two computed again, and what a picofarad at each node costs."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+
+from msgspec import Struct
+from msgspec.structs import replace
+
+from tauledger.answers.elements import Element, elements
+from tauledger.network.recompute import scaled
+from tauledger.network.targets import PERCENT, UnityMove, follow_unity, unity_moves, with_capacitance
+from tauledger.network.unity import Unity
+from tauledger.numbers import Numbers
+from tauledger.record import Review, UnityElement, UnityNode
+
+PROBE = 1e-12
+RERUN = 2
+# Changes by 10 % of an element, or by 1 pF: below these nobody looks.
+WORTH_A_FRACTION = 5e-3
+WORTH_DEGREES = 0.1
+# A degree of margin counts like a per cent of f_u.
+DEGREE = 0.01
+MOST_NODES = 12
+
+
+class UnityShares(Struct, frozen=True):
+    """Elements and nodes, the largest effect first."""
+
+    elements: tuple[UnityElement, ...]
+    nodes: tuple[UnityNode, ...]
+
+
+def unity_shares(found: Review, numbers: Numbers, unity: Unity) -> UnityShares:
+    """Give the elements of which 10 % less, and the nodes where 1 pF, moves f_u by 0.5 % or the margin by 0.1°.
+
+    found: the review so far, for the names of its signal nodes.
+    Raises NetworkError where the network has no unique solution.
+    """
+    high = numbers.edges.f_high
+    moves = unity_moves(numbers.network, numbers.midband, unity, high.hz if high is not None else None)
+    return UnityShares(_elements(numbers, unity, moves.parts), _nodes(found, numbers, unity, moves.nodes))
+
+
+def _size(f_unity: float, margin_deg: float) -> float:
+    """Rank a change of f_u (a fraction) and one of the margin on one scale."""
+    return max(abs(f_unity), DEGREE * abs(margin_deg))
+
+
+def _elements(numbers: Numbers, unity: Unity, moves: Mapping[str, UnityMove]) -> tuple[UnityElement, ...]:
+    rows = []
+    for one in elements(numbers):
+        row = _element(one, moves[one.name])
+        # 10 % less of it
+        if abs(row.f_unity) >= 10.0 * WORTH_A_FRACTION or abs(row.phase_margin_deg) >= WORTH_DEGREES / 10.0:
+            rows.append((one, row))
+    rows.sort(key=lambda pair: -_size(pair[1].f_unity, pair[1].phase_margin_deg / PERCENT))
+    proven = []
+    for one, row in rows[:RERUN]:
+        again = follow_unity(scaled(numbers.network, {one.name: one.ten_percent_less}), numbers.midband, unity)
+        hz, margin = (again.hz, again.phase_margin_deg) if again is not None else (None, None)
+        proven.append(replace(row, f_unity_rerun_hz=hz, phase_margin_rerun_deg=margin))
+    return (*proven, *(row for _, row in rows[RERUN:]))
+
+
+def _element(one: Element, move: UnityMove) -> UnityElement:
+    more = PERCENT * one.sign
+    return UnityElement(
+        name=one.name,
+        owner=one.owner,
+        nodes=one.nodes,
+        value=one.value,
+        unit=one.unit,
+        free=one.free,
+        moves_bias=one.moves_bias,
+        f_unity=-one.sign * move.f_unity,
+        phase_margin_deg=more * move.phase_margin_deg,
+        gain_margin_db=None if move.gain_margin_db is None else more * move.gain_margin_db,
+        gain_bandwidth=None if move.gain_bandwidth is None else -one.sign * move.gain_bandwidth,
+    )
+
+
+def _nodes(found: Review, numbers: Numbers, unity: Unity, moves: Mapping[str, UnityMove]) -> tuple[UnityNode, ...]:
+    """Give the signal nodes, or where there are none by hand all nodes of the netlist, that a picofarad matters at."""
+    titles = {row.name: row.title for row in found.nodes if row.name in moves and not row.second} or {
+        name: name for name in moves if "'" not in name
+    }
+    rows = [
+        UnityNode(name, title, unity.hz * moves[name].f_unity, moves[name].phase_margin_deg, None, None)
+        for name, title in titles.items()
+    ]
+    rows = [
+        row
+        for row in rows
+        if PROBE * abs(row.per_farad) >= WORTH_A_FRACTION * unity.hz or PROBE * abs(row.margin_slope) >= WORTH_DEGREES
+    ]
+    rows.sort(key=lambda row: -_size(PROBE * row.per_farad / unity.hz, PROBE * row.margin_slope))
+    told = []
+    for row in rows[:MOST_NODES]:
+        again = follow_unity(with_capacitance(numbers.network, row.node, PROBE), numbers.midband, unity)
+        hz, margin = (again.hz, again.phase_margin_deg) if again is not None else (None, None)
+        told.append(replace(row, one_picofarad_hz=hz, one_picofarad_margin_deg=margin))
+    return tuple(told)
