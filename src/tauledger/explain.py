@@ -15,6 +15,7 @@ from msgspec import Struct
 from tauledger.causes.catalogue import find_causes, find_notes
 from tauledger.causes.cause import Cause, Note
 from tauledger.causes.evidence import EdgeEvidence, Evidence
+from tauledger.causes.line_left_out import in_words
 from tauledger.hand.at_edge import edge_factors
 from tauledger.hand.budget import part_resistances, signal_nodes
 from tauledger.hand.combine import Combined, combine_lower, combine_upper
@@ -38,8 +39,10 @@ from tauledger.network.identities import (
     short_identities,
     weight_identities,
 )
+from tauledger.network.lines import at_rest
 from tauledger.network.lower import ShortConstants, short_constants
-from tauledger.network.recompute import EdgeFrequencies, each_scaled
+from tauledger.network.recompute import EdgeFrequencies, each_scaled, edge_frequencies
+from tauledger.network.ripple import followed_to_hz
 from tauledger.network.shares import Shares, find_shares
 from tauledger.network.solve import Complex
 from tauledger.network.spectrum import pole_frequencies, zero_frequencies
@@ -85,11 +88,12 @@ def explain(numbers: Numbers) -> Explanation:
     shares_high, shares_low = _shares(numbers, edges.f_high), _shares(numbers, edges.f_low)
     poles, zeros = _roots(numbers)
     worked = midband.plateau and bands.sound and numbers.poles.stable
+    rest = _at_rest(numbers)
     open_rows, short_rows, hand, upper, lower = None, None, None, None, None
     if worked:
         open_rows, short_rows = open_constants(bands), short_constants(bands)
         check((*open_identities(open_rows), *weight_identities(bands, open_rows), *short_identities(short_rows)))
-        hand, upper, lower = _by_hand(numbers, open_rows)
+        hand, upper, lower = _by_hand(numbers, open_rows, rest)
     evidence = Evidence(
         bands=bands,
         poles=poles,
@@ -97,10 +101,12 @@ def explain(numbers: Numbers) -> Explanation:
         devices=numbers.devices,
         nodes=hand.nodes if hand else (),
         capacitors=hand.lower if hand else (),
-        upper=_evidence("f_high", edges.f_high, hand, upper, shares_high),
-        lower=_evidence("f_low", edges.f_low, hand, lower, shares_low),
+        upper=_evidence("f_high", edges.f_high, hand, upper, shares_high, rest.f_high if rest else None),
+        lower=_evidence("f_low", edges.f_low, hand, lower, shares_low, rest.f_low if rest else None),
         stepped=numbers.bias is not None and numbers.bias.stepped,
         images=images(hand.nodes) if hand else {},
+        lines=network.lines,
+        followed_to_hz=followed_to_hz(network) if network.lines else None,
     )
     effects: dict[complex, float] = {}
     for combined, is_lower in ((upper, False), (lower, True)):
@@ -154,9 +160,25 @@ def _roots(numbers: Numbers) -> tuple[Complex, Complex]:
     return np.array(both[0], dtype=complex), np.array(both[1], dtype=complex)
 
 
-def _by_hand(numbers: Numbers, constants: OpenConstants) -> tuple[HandEstimate, Combined, Combined]:
+def _at_rest(numbers: Numbers) -> EdgeFrequencies | None:
+    """Give the band edges with every line as at DC, mid-band frequency held; None without lines."""
+    if not numbers.network.lines:
+        return None
+    return edge_frequencies(at_rest(numbers.network), numbers.midband)
+
+
+def _by_hand(
+    numbers: Numbers, constants: OpenConstants, rest: EdgeFrequencies | None
+) -> tuple[HandEstimate, Combined, Combined]:
     bands, devices, edges = numbers.bands, numbers.devices, numbers.edges
     high, low = (edge.hz if edge is not None else None for edge in (edges.f_high, edges.f_low))
+    whole, of_lines = EdgeFrequencies(low, high), EdgeFrequencies(None, None)
+    if rest is not None:
+        whole, of_lines = rest, whole
+    lines = numbers.network.lines
+    why = (
+        f"{', '.join(in_words(line) for line in lines)}: {'lines' if len(lines) > 1 else 'a line'}, till here as at DC"
+    )
     nodes, capacitors = signal_nodes(bands, devices), lower_rows(bands, devices)
     upper_poles, lower_poles = pole_frequencies(bands.upper), pole_frequencies(bands.lower)
     upper_zeros, lower_zeros = zero_frequencies(bands.upper, upper_poles), zero_frequencies(bands.lower, lower_poles)
@@ -173,13 +195,20 @@ def _by_hand(numbers: Numbers, constants: OpenConstants) -> tuple[HandEstimate, 
         stages=stage_rows(bands, devices),
         part_resistance=part_resistances(bands, devices),
         steps=(
-            *upper_steps(nodes, upper, full_hz=high, stable=numbers.poles.stable),
+            *upper_steps(
+                nodes,
+                upper,
+                full_hz=whole.f_high,
+                stable=numbers.poles.stable,
+                lines=(why, of_lines.f_high) if rest is not None else None,
+            ),
             *lower_steps(
                 capacitors,
                 lower,
-                full_hz=low,
+                full_hz=whole.f_low,
                 stable=numbers.poles.stable,
                 zero_owner=nearest_zero_owner(bands, capacitors, lower),
+                lines=(why, of_lines.f_low) if rest is not None else None,
             ),
         ),
         methods=methods(
@@ -203,8 +232,10 @@ def _evidence(
     hand: HandEstimate | None,
     combined: Combined | None,
     shares: Shares | None,
+    at_rest_hz: float | None,
 ) -> EdgeEvidence:
     return EdgeEvidence(
+        at_rest_hz=at_rest_hz,
         edge=name,
         hz=edge.hz if edge else None,
         slope=edge.slope if edge else None,

@@ -234,8 +234,8 @@ class PartRow(Struct, frozen=True):
     """One capacitance, inductance, transcapacitance (four nodes: output pair, control pair) or line (near, far pair).
 
     klass, "class" in JSON: short, open, gain, tuned, line. edge_hz: 1/(2πRC) of a coupling or bypass capacitor;
-    zero_hz: the zero that it makes alone. time_constant_s = resistance_exact_ohm · value. aid: a measuring aid, open or short
-    by its size: without share, and in no table.
+    zero_hz: the zero that it makes alone. time_constant_s = resistance_exact_ohm · value. aid: a measuring aid, open
+    or short by its size: without share, and in no table.
     """
 
     name: str

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from msgspec import Struct
 
-from tauledger.compose.helps import UNITS, is_element, moves_bias
+from tauledger.compose.helps import UNITS, is_card, is_element, moves_bias
 from tauledger.numbers import Numbers
 
 LESS = 0.1
@@ -47,7 +47,7 @@ def elements(numbers: Numbers) -> tuple[Element, ...]:
                 value=float(1.0 / part.value if resistor else part.value),
                 unit=UNITS.get(part.kind, "S"),
                 sign=-1.0 if resistor else 1.0,
-                free=part.name == part.owner and not bias,
+                free=is_card(part) and not bias,
                 moves_bias=bias,
             )
         )

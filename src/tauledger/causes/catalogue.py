@@ -14,6 +14,12 @@ from tauledger.causes.feedback_ignored import loop_ignored, positive_gain_bridgi
 from tauledger.causes.further_poles import further_poles_above, further_poles_below
 from tauledger.causes.gain_falls_first import gain_falls_first
 from tauledger.causes.interaction import interaction_above, interaction_below
+from tauledger.causes.line_left_out import (
+    line_left_out_above,
+    line_left_out_below,
+    lines_as_at_dc,
+    ripple_followed_so_far,
+)
 from tauledger.causes.no_dominant_pole import no_dominant_pole_above, no_dominant_pole_below
 from tauledger.causes.on_paper import base_resistance, degeneration_ignored
 from tauledger.causes.output_left_out import other_node_left_out, output_left_out
@@ -37,6 +43,8 @@ CAUSES: tuple[Callable[[Evidence], Cause | None], ...] = (
     zero_near_lower_edge,
     upper_edge_near_lower,
     lower_edge_near_upper,
+    line_left_out_above,
+    line_left_out_below,
     base_resistance,
     degeneration_ignored,
     loop_ignored,
@@ -61,7 +69,8 @@ NOTES: tuple[Callable[[Evidence], Note | None], ...] = (
     notes.neither_short_nor_open,
     notes.tuned,
     notes.coupled,
-    notes.measuring_aids,
+    lines_as_at_dc,
+    ripple_followed_so_far,
     notes.ideal_drive,
     notes.model_without_charge,
     notes.as_rebuilt,

@@ -29,6 +29,7 @@ class EdgeEvidence(Struct, frozen=True):
     hz: exact, None where there is none. slope: d ln|H| / d ln f there. combined, steps: None and empty where the hand
     side is withheld. found: the same edge with what lies around it, None where nothing happens on that side.
     shares: −∂ln f/∂ln C by part name. recommended: the method that suits the edge, None where no method does.
+    at_rest_hz: the edge with every line as at DC; None without lines.
     """
 
     edge: EdgeName
@@ -39,6 +40,7 @@ class EdgeEvidence(Struct, frozen=True):
     found: Edge | None = None
     shares: Mapping[str, float] = {}
     recommended: MethodEstimate | None = None
+    at_rest_hz: float | None = None
 
     @property
     def quantity(self) -> Quantity:
@@ -51,7 +53,8 @@ class Evidence(Struct, frozen=True):
 
     poles, zeros: of the full network in rad/s (n,), (m,). devices: empty where the network was not read from a netlist.
     images: the node of the other half by that of the first, where a balanced circuit is worked as half circuits.
-    stepped: the engine found the operating point only by stepping.
+    stepped: the engine found the operating point only by stepping. lines: the network's lines, which `bands` takes
+    as at DC; followed_to_hz: how far the scan follows their ripple.
     """
 
     bands: Bands
@@ -64,6 +67,8 @@ class Evidence(Struct, frozen=True):
     lower: EdgeEvidence
     stepped: bool = False
     images: Mapping[str, str] = {}
+    lines: tuple[Part, ...] = ()
+    followed_to_hz: float | None = None
 
 
 def move(edge: EdgeEvidence, later: str, earlier: str) -> float | None:

@@ -85,7 +85,7 @@ def levels_off_above(evidence: Evidence) -> Note | None:
     """Poles act above mid-band, but |H| never falls 3 dB below it."""
     combined = evidence.upper.combined
     acts = len(combined.roots.poles) > 0 if combined is not None else len(evidence.poles) > 0
-    if evidence.upper.hz is not None or not acts:
+    if evidence.upper.hz is not None or not acts or evidence.lines:
         return None
     reach = frequency_range(evidence.poles, evidence.zeros)
     if reach is None:
@@ -102,7 +102,7 @@ def levels_off_above(evidence: Evidence) -> Note | None:
 def levels_off_below(evidence: Evidence) -> Note | None:
     """The reference lies above DC, but |H| never falls 3 dB below it on the way down."""
     midband = evidence.bands.midband
-    if evidence.lower.hz is not None or midband.reaches_dc or midband.from_hz == 0.0:
+    if evidence.lower.hz is not None or midband.reaches_dc or midband.from_hz == 0.0 or evidence.lines:
         return None
     reach = frequency_range(evidence.poles, evidence.zeros)
     if reach is None:
@@ -137,12 +137,12 @@ def further_crossings_below(evidence: Evidence) -> Note | None:
 
 def peaking_above(evidence: Evidence) -> Note | None:
     """|H| rises above mid-band before f_H."""
-    return _peaking(evidence.upper)
+    return _peaking(evidence, evidence.upper)
 
 
 def peaking_below(evidence: Evidence) -> Note | None:
     """|H| rises above mid-band before f_L."""
-    return _peaking(evidence.lower)
+    return _peaking(evidence, evidence.lower)
 
 
 def negative_share_above(evidence: Evidence) -> Note | None:
@@ -203,15 +203,6 @@ def coupled(evidence: Evidence) -> Note | None:
         f"{names} are coupled: neither short nor open at mid-band, they count in the response, the band edges and "
         "their shares, and have no time constant by hand",
     )
-
-
-def measuring_aids(evidence: Evidence) -> Note | None:
-    """Inductors and capacitors that only set the operating point, as where a loop is opened for a measurement."""
-    aids = [part for part in evidence.bands.network.parts if part.name in evidence.bands.aids]
-    if not aids:
-        return None
-    told = ", ".join(f"{p.name} {engineering(p.value, 'H' if p.kind == 'inductance' else 'F', 3)}" for p in aids)
-    return Note("measuring-aids", ", ".join(part.name for part in aids), f"measuring aids left out: {told}")
 
 
 def ideal_drive(evidence: Evidence) -> Note | None:
@@ -284,10 +275,14 @@ def _further(edge: EdgeEvidence) -> Note | None:
     return Note("further-crossings", edge.quantity, f"beyond {edge.quantity} |H| {told}: {edge.quantity} is the first")
 
 
-def _peaking(edge: EdgeEvidence) -> Note | None:
+def _peaking(evidence: Evidence, edge: EdgeEvidence) -> Note | None:
     found = edge.found
     if found is None or found.peaking_at_hz is None or found.peaking_db < PEAKS_DB:
         return None
+    peaks = f"|H| peaks {found.peaking_db:.3g} dB above mid-band at {in_hertz(found.peaking_at_hz)}"
+    if evidence.lines:
+        names = ", ".join(line.owner for line in evidence.lines)
+        return Note("peaking", edge.quantity, f"{peaks}; reflections on {names} may make it")
     q = _quality(10.0 ** (found.peaking_db / 20.0))
     step = ""
     if edge.edge == "f_high":
@@ -295,8 +290,7 @@ def _peaking(edge: EdgeEvidence) -> Note | None:
     return Note(
         "peaking",
         edge.quantity,
-        f"|H| peaks {found.peaking_db:.3g} dB above mid-band at {in_hertz(found.peaking_at_hz)}, as a pair of poles "
-        f"with Q = {q:.2f} does{step}",
+        f"{peaks}, as a pair of poles with Q = {q:.2f} does{step}",
     )
 
 

@@ -14,7 +14,7 @@ WORTH_A_ROW = 0.005
 RERUN = 3
 # a resistor that carries less than this has no part in the operating point
 NO_VOLT = 1e-6
-UNITS = {"capacitance": "F", "inductance": "H", "conductance": "Ω"}
+UNITS = {"capacitance": "F", "inductance": "H", "conductance": "Ω", "line": "s"}
 
 
 def helps(numbers: Numbers) -> tuple[Help, ...]:
@@ -44,10 +44,15 @@ def helps(numbers: Numbers) -> tuple[Help, ...]:
     return (*proven, *rows[RERUN:])
 
 
+def is_card(part: Part) -> bool:
+    """Whether a part is a card of the netlist by itself, a line's delay included, and not inside a device."""
+    return part.name == part.owner or part.kind == "line"
+
+
 def is_element(part: Part) -> bool:
     """Whether a part is something to choose or to blame: a card, a device's capacitance or its gm."""
-    card = part.name == part.owner
-    if part.kind in ("capacitance", "inductance"):
+    card = is_card(part)
+    if part.kind in ("capacitance", "inductance", "line"):
         return part.value > 0.0
     if part.kind == "conductance":
         return card and part.value > 0.0
@@ -57,7 +62,7 @@ def is_element(part: Part) -> bool:
 def _row(part: Part, change: Sensitivity, numbers: Numbers) -> Help:
     # a resistance is the inverse of the part's value: less of it is more conductance
     sign = LESS if part.kind == "conductance" else -LESS
-    card, bias = part.name == part.owner, moves_bias(part, numbers)
+    card, bias = is_card(part), moves_bias(part, numbers)
     return Help(
         name=part.name,
         owner=part.owner,
@@ -74,7 +79,7 @@ def _row(part: Part, change: Sensitivity, numbers: Numbers) -> Help:
 
 def moves_bias(part: Part, numbers: Numbers) -> bool:
     """Whether the element takes part in the operating point: a resistor that carries direct current, and any gm."""
-    if part.kind in ("capacitance", "inductance"):
+    if part.kind in ("capacitance", "inductance", "line"):
         return False
     if part.kind != "conductance":
         return True

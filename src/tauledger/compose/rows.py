@@ -40,20 +40,21 @@ def node_rows(explanation: Explanation) -> tuple[NodeRow, ...]:
 
 
 def part_rows(numbers: Numbers, explanation: Explanation) -> tuple[PartRow, ...]:
-    """Give one row per capacitance, inductance and transcapacitance; none where the network is not trusted."""
+    """Give one row per capacitance, inductance, transcapacitance and line; none where the network is not trusted."""
     if not numbers.trusted:
         return ()
     opened = {row.name: row for row in explanation.open.parts} if explanation.open else {}
     shorted = {name: row for row in explanation.short.parts for name in row.names} if explanation.short else {}
     rows = []
     for part in numbers.network.parts:
-        if part.kind not in REACTIVE:
+        if part.kind not in (*REACTIVE, "line"):
             continue
         open_row, short_row = opened.get(part.name), shorted.get(part.name)
         less = explanation.ten_percent_less.get(part.name, EdgeFrequencies(None, None))
         by_hand = explanation.hand.part_resistance.get(part.name) if explanation.hand else None
         aid = part.name in numbers.bands.aids
-        sets_gain = numbers.bands.class_of[part.name] == "gain" and short_row is not None
+        klass = "line" if part.kind == "line" else numbers.bands.class_of[part.name]
+        sets_gain = klass == "gain" and short_row is not None
         hand_ohm = by_hand.ohm if by_hand is not None and not sets_gain else _lower_hand(explanation, part.name)
         hand_ohm = _finite(hand_ohm) if sets_gain else hand_ohm
         rows.append(
@@ -63,7 +64,7 @@ def part_rows(numbers: Numbers, explanation: Explanation) -> tuple[PartRow, ...]
                 kind=part.kind,
                 nodes=part.nodes,
                 value=part.value,
-                klass=numbers.bands.class_of[part.name],
+                klass=klass,
                 in_path=_in_path(open_row, short_row),
                 weight=_weight(open_row, short_row),
                 resistance_hand_ohm=hand_ohm,

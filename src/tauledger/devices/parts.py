@@ -145,7 +145,8 @@ def line(
     owner: str, nodes: tuple[str, str, str, str], delay_s: float, surge_ohm: float = 0.0, series_ohm: float = 0.0
 ) -> Part:
     """A uniform line of the delay √(L·C) and √(L/C) = surge_ohm, R = series_ohm; of R·C = delay_s without surge_ohm."""
-    return Part("line", owner, "", nodes, delay_s, surge_ohm=surge_ohm, series_ohm=series_ohm)
+    label = "delay" if surge_ohm else "rc"
+    return Part("line", owner, label, nodes, delay_s, surge_ohm=surge_ohm, series_ohm=series_ohm)
 
 
 def voltage_source(owner: str, a: str, b: str, amplitude: complex = 0.0) -> Part:

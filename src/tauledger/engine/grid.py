@@ -36,7 +36,7 @@ def decades(start_hz: float, stop_hz: float, points: int) -> NDArray[np.float64]
 
 
 def evenly(start_hz: float, stop_hz: float, count: int) -> NDArray[np.float64]:
-    """Give `count` evenly spaced frequencies (n,) in Hz, both ends included; one run of the engine where there are 16."""
+    """Give `count` evenly spaced frequencies (n,) in Hz, both ends included; from 16 on one run of the engine."""
     return np.linspace(start_hz, stop_hz, count)
 
 

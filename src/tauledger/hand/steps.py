@@ -1,7 +1,8 @@
 """From paper to the full network: the estimate of one band edge, one step after the other, with the reason in words.
 
 A step is never an improvement: two errors may cancel on paper, and where two large steps do, the later one says so.
-Steps: lowest (the dominant time constant alone), all-nodes, exact-constants, two-coefficients, all-poles, zeros, full.
+Steps: lowest (the dominant time constant alone), all-nodes, exact-constants, two-coefficients, all-poles, zeros, full;
+with lines, which are as at DC until then, lines.
 """
 
 from __future__ import annotations
@@ -23,6 +24,7 @@ IN_WORDS = {
     "all-poles": "the further poles",
     "zeros": "the zeros",
     "full": "the real mid-band",
+    "lines": "the lines",
 }
 
 LARGE = 0.05
@@ -34,12 +36,18 @@ INDEPENDENT = (0.8, 1.25)
 
 
 def upper_steps(
-    nodes: Sequence[SignalNode], combined: Combined, *, full_hz: float | None, stable: bool = True
+    nodes: Sequence[SignalNode],
+    combined: Combined,
+    *,
+    full_hz: float | None,
+    stable: bool = True,
+    lines: tuple[str, float | None] | None = None,
 ) -> tuple[StepEstimate, ...]:
     """Give the steps from the lowest signal node alone to f_H of the full network.
 
     combined: of `combine_upper` with the same nodes. full_hz: f_H of the full network, None where there is none.
-    stable: no pole of the full network lies in the right half plane.
+    stable: no pole of the full network lies in the right half plane. lines: why lines move it further, and f_H with
+    them as they are; full_hz has them as at DC.
     Empty where the network is unstable or no pole lies between input and output.
     The step two-coefficients is left out where it leads away from where all poles lead back.
     """
@@ -55,7 +63,7 @@ def upper_steps(
         "zeros": _zeros(combined, nearest=min, levels="the zero at {} holds the gain up"),
         "full": "coupling capacitors are real: mid-band is not flat",
     }
-    return _walk("f_high", combined, reasons, full_hz)
+    return _walk("f_high", combined, reasons, full_hz, lines)
 
 
 def lower_steps(
@@ -65,11 +73,13 @@ def lower_steps(
     full_hz: float | None,
     stable: bool = True,
     zero_owner: LowerRow | None = None,
+    lines: tuple[str, float | None] | None = None,
 ) -> tuple[StepEstimate, ...]:
     """Give the steps from the capacitor with the highest edge alone to f_L of the full network.
 
     combined: of `combine_lower` with the same rows. full_hz: f_L of the full network, None where there is none.
     stable: no pole of the full network lies in the right half plane. zero_owner: whose is the zero nearest the edge.
+    lines: as in `upper_steps`.
     Empty where the network is unstable or no pole lies between input and output.
     The step two-coefficients is left out where it leads away from where all poles lead back.
     """
@@ -86,7 +96,7 @@ def lower_steps(
         + ("" if zero_owner is None or combined.with_zeros is None else f" ({zero_owner.title})"),
         "full": "load and device capacitances are real: mid-band is not flat",
     }
-    return _walk("f_low", combined, reasons, full_hz)
+    return _walk("f_low", combined, reasons, full_hz, lines)
 
 
 def factors(steps: Sequence[StepEstimate]) -> tuple[float | None, ...]:
@@ -99,7 +109,13 @@ def factors(steps: Sequence[StepEstimate]) -> tuple[float | None, ...]:
     return tuple(moved)
 
 
-def _walk(edge: Edge, combined: Combined, reasons: dict[str, str], full_hz: float | None) -> tuple[StepEstimate, ...]:
+def _walk(
+    edge: Edge,
+    combined: Combined,
+    reasons: dict[str, str],
+    full_hz: float | None,
+    lines: tuple[str, float | None] | None,
+) -> tuple[StepEstimate, ...]:
     hz = {
         "lowest": combined.lowest,
         "all-nodes": combined.all_nodes,
@@ -117,6 +133,8 @@ def _walk(edge: Edge, combined: Combined, reasons: dict[str, str], full_hz: floa
         reasons = {**reasons, "full": f"{reasons['full']}, and it never falls 3 dB below its reference"}
     elif combined.with_zeros is not None and abs(full_hz / combined.with_zeros - 1.0) < SAME:
         reasons = {**reasons, "full": "nothing on the other side of mid-band moves it"}
+    if lines is not None:
+        reasons, hz = {**reasons, "lines": lines[0]}, {**hz, "lines": lines[1]}
     return _say_what_cancels(tuple(StepEstimate(edge, step, value, reasons[step]) for step, value in hz.items()))
 
 

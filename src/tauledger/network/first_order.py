@@ -17,6 +17,7 @@ from msgspec import Struct
 from tauledger.devices.parts import Part
 from tauledger.network.assemble import Network, incidence
 from tauledger.network.edges import HALF_POWER, Edges
+from tauledger.network.lines import line_moments
 from tauledger.network.midband import MidBand
 from tauledger.network.reactances import by_part, moments, reactances
 from tauledger.network.recompute import edge_frequencies, scaled
@@ -45,7 +46,7 @@ class Recomputed(Struct, frozen=True):
 
 
 def sensitivities(network: Network, midband: MidBand, edges: Edges, parts: Iterable[Part]) -> Mapping[str, Sensitivity]:
-    """Give the sensitivity to every reactive part, and to those of `parts` that are (trans)conductances, by part name.
+    """Give the sensitivity to every reactive part, line, and (trans)conductance among `parts`, by part name.
 
     Raises NetworkError where the network has no unique solution.
     """
@@ -56,6 +57,7 @@ def sensitivities(network: Network, midband: MidBand, edges: Edges, parts: Itera
     terms = reactances(network)
     reactive = [by_part(terms, row.real) for row in -at.s[:, None] * moments(terms, at)]
     moved = {name: np.array([row[name] for row in reactive]) for name in terms.names}
+    moved |= {name: (-at.s * moment / at.response).real for name, moment in line_moments(network, at).items()}
     for part in parts:
         if part.kind not in RESISTIVE or not part.value:
             continue

@@ -26,6 +26,12 @@ def spacing_hz(network: Network) -> float | None:
     return 1.0 / (2.0 * delay * PER_PERIOD) if delay else None
 
 
+def followed_to_hz(network: Network) -> float | None:
+    """Give how far in Hz a ripple is followed at least; None where no line reflects."""
+    spacing = spacing_hz(network)
+    return None if spacing is None else MOST_POINTS * spacing
+
+
 def with_ripple(
     network: Network, frequency_hz: Real, h: Complex, *, from_hz: float, level: float
 ) -> tuple[Real, Complex]:

@@ -19,6 +19,7 @@ from msgspec import Struct
 from tauledger.devices.parts import Part, capacitance
 from tauledger.network.assemble import Network, assemble, incidence
 from tauledger.network.edges import at_same_frequency
+from tauledger.network.lines import line_moments
 from tauledger.network.midband import MidBand
 from tauledger.network.reactances import moments, reactances, together
 from tauledger.network.solve import Complex, Real, log_slope, on_axis, response, solve
@@ -90,6 +91,7 @@ def log_sensitivity(network: Network, frequency_hz: Real) -> LogSensitivity:
     moved: dict[str, Complex] = {
         part.name: np.array([row[k] for row in reactive], dtype=complex) for k, part in enumerate(terms.distinct)
     }
+    moved |= {name: -at.s * moment / at.response for name, moment in line_moments(network, at).items()}
     for part in network.parts:
         term = _resistive(network, part)
         if term is not None:

@@ -19,6 +19,7 @@ _IN_SHORT = {
     "all-poles": "further poles",
     "zeros": "zeros",
     "full": "the whole network",
+    "lines": "the lines",
 }
 _CLASSICAL = "sum of time constants"
 _NOT_BY_HAND = ("all poles", "exact", "simulated")

@@ -12,6 +12,7 @@ from tauledger.report.wording import (
     NO_NUMBER,
     SOLVED,
     amount,
+    group_delay,
     move,
     number,
     part_titles,
@@ -55,7 +56,8 @@ def upper_budget(review: Review, *, verbose: bool = False) -> Section:
     if any(_mark(node) == LOOP for node in shown):
         blocks.append(Prose("R0/(1 + T) or branches by 1 − K, with T and K of the solved network", lead=f"  {LOOP} "))
     if review.budget.upper:
-        blocks.append(Prose(_sums(review.budget.upper, halves=any(n.image for n in first)), lead="  "))
+        halves, delay = any(n.image for n in first), group_delay(review)
+        blocks.append(Prose(_sums(review.budget.upper, halves=halves, delay=delay), lead="  "))
     if verbose:
         blocks.extend(workings(review, [node for node in shown if node.working]).blocks)
     return Section(tuple(blocks), major=True)
@@ -176,9 +178,9 @@ def _times(term: CapacitanceTerm) -> str:
     return "" if abs(term.factor - 1.0) < 5e-4 else f" {number(term.farad, 'F', 3)} × {term.factor:.4g}"
 
 
-def _sums(budget: UpperBudget, *, halves: bool) -> str:
+def _sums(budget: UpperBudget, *, halves: bool, delay: str) -> str:
     path = "" if budget.path_sum_s is None else f"Σ R·C {number(budget.path_sum_s, 's')}; "
-    weighted = _pair("weighted", budget.weighted_sum_s, "group delay", budget.group_delay_s)
+    weighted = _pair("weighted", budget.weighted_sum_s, delay, budget.group_delay_s)
     whose = "both halves" if halves else "all parts"
     return f"{path}{weighted}; {_pair(whose, budget.sum_s, '-Σ 1/p', budget.inverse_pole_sum_s)}"
 

@@ -8,7 +8,7 @@ import re
 from tauledger.record import DeviceFacts, DriveFacts, OutputFacts, Review
 from tauledger.report.tables.grid import Column, Grid, GridRow
 from tauledger.report.tables.upper import counting_nodes, resistors_at
-from tauledger.report.wording import NO_NUMBER, figure_symbols, fraction, nominal, number, part_unit
+from tauledger.report.wording import NO_NUMBER, figure_symbols, fraction, group_delay, nominal, number, part_unit
 
 # More columns than these are wider than a page.
 FIGURES_A_TABLE = 9
@@ -151,7 +151,10 @@ def sums(review: Review) -> Grid:
             ("Sum of R·C over all parts", number(upper.sum_s, "s"), "−Σ 1/pole", number(upper.inverse_pole_sum_s, "s"))
         )
         rows.append(
-            ("Weighted sum of R·C", number(upper.weighted_sum_s, "s"), "group delay", number(upper.group_delay_s, "s"))
+            (
+                *("Weighted sum of R·C", number(upper.weighted_sum_s, "s")),
+                *(group_delay(review), number(upper.group_delay_s, "s")),
+            )
         )
     if lower is not None and lower.sum_hz and lower.pole_sum_hz is not None:
         rows.append(("Sum of lower edges", number(lower.sum_hz, "Hz"), "−Σ pole/2π", number(lower.pole_sum_hz, "Hz")))

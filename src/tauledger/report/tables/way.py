@@ -20,6 +20,7 @@ STEP_TITLES = {
     "all-poles": "all poles",
     "zeros": "zeros too",
     "full": "whole network",
+    "lines": "lines as they are",
     "simulated": "simulated",
     "exact": "exact",
 }

@@ -1,0 +1,86 @@
+"""Lines: paper takes them as they are at DC, the edge has their delay, reflections and capacitance in it."""
+
+from __future__ import annotations
+
+from tauledger.causes.cause import Cause, Note
+from tauledger.causes.evidence import EdgeEvidence, Evidence, in_hertz
+from tauledger.devices.parts import Part
+from tauledger.network.lines import series_and_shunt
+from tauledger.quantity import engineering
+from tauledger.record import NamedNumber
+
+
+def line_left_out_above(evidence: Evidence) -> Cause | None:
+    """Lines move f_H. Effect: f_H ÷ f_H with every line as it is at DC."""
+    return _left_out(evidence, evidence.upper)
+
+
+def line_left_out_below(evidence: Evidence) -> Cause | None:
+    """Lines move f_L. Effect as above."""
+    return _left_out(evidence, evidence.lower)
+
+
+def lines_as_at_dc(evidence: Evidence) -> Note | None:
+    """Lines, of which poles, zeros, budget and the hand side see only what they are at DC."""
+    if not evidence.lines:
+        return None
+    one, wires = len(evidence.lines) == 1, all(line.series_ohm == 0.0 for line in evidence.lines)
+    what = ("a wire" if one else "wires") if wires else "what resistance it has" if one else "what resistance they have"
+    return Note(
+        "lines",
+        ", ".join(line.owner for line in evidence.lines),
+        f"{', '.join(in_words(line) for line in evidence.lines)} {'is a line' if one else 'are lines'}: response, band "
+        f"edges and shares are exact; poles, zeros, time constants and figures by hand leave out "
+        f"{'its delay and take it' if one else 'their delays and take them'} as at DC, {what}",
+    )
+
+
+def ripple_followed_so_far(evidence: Evidence) -> Note | None:
+    """The ripple of long lines is not followed as far as f_H."""
+    limit, hz = evidence.followed_to_hz, evidence.upper.hz
+    if limit is None or (hz is not None and hz <= limit):
+        return None
+    return Note(
+        "ripple-followed",
+        ", ".join(line.owner for line in evidence.lines),
+        f"the ripple that lines make is followed up to {in_hertz(limit)}; beyond, |H| may fall below -3 dB between two "
+        "frequencies looked at",
+    )
+
+
+def in_words(line: Part) -> str:
+    """Name a line with what it is: "T1 (75 Ω, 50 ns)", "O1 (75 Ω, 50 ns, 10 Ω along it)", "O2 (1 kΩ and 1 nF)"."""
+    ohm, _, farad = series_and_shunt(line)
+    if not line.surge_ohm:
+        return f"{line.owner} ({_short(ohm, 'Ω')} and {_short(farad, 'F')})"
+    along = f", {_short(ohm, 'Ω')} along it" if ohm else ""
+    return f"{line.owner} ({_short(line.surge_ohm, 'Ω')}, {_short(line.value, 's')}{along})"
+
+
+def _left_out(evidence: Evidence, edge: EdgeEvidence) -> Cause | None:
+    if not evidence.lines or edge.hz is None or edge.at_rest_hz is None:
+        return None
+    of_all = [series_and_shunt(line) for line in evidence.lines]
+    farad, henry = sum(c for _, _, c in of_all), sum(h for _, h, _ in of_all)
+    names = ", ".join(line.owner for line in evidence.lines)
+    amounts = f"{_short(farad, 'F')} across" + (f" and {_short(henry, 'H')} along" if henry else "")
+    matched = "end a line with its own resistance, or " if henry else ""
+    many = len(evidence.lines) > 1
+    return Cause(
+        cause="line-left-out",
+        quantity=edge.quantity,
+        effect=edge.hz / edge.at_rest_hz - 1.0,
+        where=names,
+        says=f"{', '.join(in_words(line) for line in evidence.lines)} {'are lines' if many else 'is a line'}: "
+        f"taken as at DC, as on paper, {edge.quantity} would be {in_hertz(edge.at_rest_hz)}; it is {in_hertz(edge.hz)}",
+        instead=f"{matched}where it is short against the wavelength, put {amounts} into the circuit",
+        numbers=(
+            NamedNumber(f"{edge.quantity} with lines as at DC", edge.at_rest_hz, "Hz"),
+            NamedNumber("C of all lines", farad, "F"),
+            NamedNumber("L of all lines", henry, "H"),
+        ),
+    )
+
+
+def _short(value: float, unit: str) -> str:
+    return engineering(value, unit, 3, zeros=False)
