@@ -28,6 +28,8 @@ class Isolation(Struct, frozen=True):
     record ("collCX"); those that the instance does not have are left out. parameters: instance parameters set
     otherwise than on its card. each_node: every place of a node on the card is a terminal of its own, even where two
     are one node; voltages are in that order then. driven: which terminals, by place, where not all are needed.
+    grounded: place of one at 0 V that needs no source, where nothing inside the instance leads to ground: its current
+    is what the others leave.
     """
 
     element: str
@@ -38,6 +40,7 @@ class Isolation(Struct, frozen=True):
     parameters: tuple[tuple[str, float], ...] = ()
     each_node: bool = False
     driven: tuple[int, ...] = ()
+    grounded: int | None = None
 
 
 class Samples(Struct, frozen=True):

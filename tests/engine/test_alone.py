@@ -4,9 +4,10 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
+from msgspec.structs import replace
 
 from circuits import board, preamp
-from tauledger.circuit import Circuit, Port
+from tauledger.circuit import Circuit, Model, Port
 from tauledger.devices.catalogue import linearise, observations
 from tauledger.engine.client import Engine
 from tauledger.engine.grid import decades
@@ -16,6 +17,7 @@ from tauledger.network.solve import admittance, on_axis
 from tauledger.solution import Bias, Isolation
 
 GRID = decades(1e3, 1e9, 2)
+BSIM = Model("mx", "nmos", 54, (("version", 4.8), ("vth0", 0.5), ("cgso", 2e-10)), 0, 0)
 
 
 def isolation(circuit: Circuit, bias: Bias, **keywords: object) -> Isolation:
@@ -59,15 +61,15 @@ def test_the_loaded_circuit_is_swept_after_a_measurement(engine: Engine) -> None
 
 
 def test_terminals_that_are_not_driven_answer_to_those_that_are(engine: Engine) -> None:
-    """One of them at 0 V is ground itself; its current is what the others leave."""
-    circuit = preamp()
-    every, shifted = (Isolation("Q1", (5.0 + v, 0.65 + v, v), tuple(GRID.tolist())) for v in (0.0, 1.0))
+    """One of them at 0 V may be ground itself; its current is what the others leave."""
+    circuit = board("M1 d g s b mx w=1e-5 l=1e-6", "RD d 0 1", "RG g 0 1", "RS s 0 1", "RB b 0 1", models=(BSIM,))
+    every = Isolation("M1", (1.0, 1.2, 0.0, -0.3), tuple(GRID.tolist()))
     whole = engine.isolate(circuit, every).admittance
-    for volts in (every.voltages, shifted.voltages):
-        some = engine.isolate(circuit, Isolation("Q1", volts, every.frequency_hz, driven=(1,)))
+    for grounded in (None, 2):
+        some = engine.isolate(circuit, replace(every, driven=(1,), grounded=grounded))
         assert np.allclose(some.admittance[:, :, 1], whole[:, :, 1], rtol=1e-9, atol=1e-16)
-        assert np.all(np.isnan(some.admittance[:, :, [0, 2]]))
-        assert some.current_gain.shape == (len(GRID), 3, 0)
+        assert np.all(np.isnan(some.admittance[:, :, [0, 2, 3]]))
+        assert some.current_gain.shape == (len(GRID), 4, 0)
 
 
 def test_parameters_can_be_set_otherwise(engine: Engine) -> None:

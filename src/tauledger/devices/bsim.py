@@ -32,7 +32,7 @@ READINGS = (
 OVERLAP = ("cgso", "cgdo", "cgbo")
 # Without inner nodes the instance is exactly G + s·C, so that one frequency tells C; here rounding matters least.
 ISOLATED_HZ = 1e9
-GATE = 1
+GATE, SOURCE = 1, 2
 
 # What makes an instance more than its readings tell, with the words for it; nonzero is on.
 IMPACT = ("alpha0", "alpha1", "lalpha0", "walpha0", "palpha0", "lalpha1", "walpha1", "palpha1")
@@ -77,7 +77,15 @@ def _isolate(circuit: Circuit, element: Element, bias: Bias) -> Isolation | None
     sign = -1.0 if is_p(circuit.model(element.model).type) else 1.0
     volts = (sign * read["vds"], sign * read["vgs"], 0.0, sign * read["vbs"])
     without_resistance = (("nrd", 0.0), ("nrs", 0.0))
-    return Isolation(element.name, volts, (ISOLATED_HZ,), parameters=without_resistance, each_node=True, driven=(GATE,))
+    return Isolation(
+        element.name,
+        volts,
+        (ISOLATED_HZ,),
+        parameters=without_resistance,
+        each_node=True,
+        driven=(GATE,),
+        grounded=SOURCE,
+    )
 
 
 def _linearise(circuit: Circuit, element: Element, bias: Bias) -> Device:

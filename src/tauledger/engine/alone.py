@@ -2,8 +2,7 @@
 
 Every terminal stands on a voltage source of its own, ground included; a source that the instance refers to carries a
 forced current. The engine is asked with unit AC on one of them after the other, of all instances at once: they do not
-touch each other. Where only some terminals are driven, one of the others that stands at 0 V is ground itself, and its
-current what the others leave: a thousand sources less for a thousand transistors.
+touch each other. One terminal may be ground itself: a thousand sources less for a thousand transistors.
 """
 
 from __future__ import annotations
@@ -103,7 +102,7 @@ def bench(circuit: Circuit, isolations: Sequence[Isolation]) -> Bench:
             raise ValueError(
                 f"{element.name} has {len(ends)} terminals and {len(element.references)} controlling currents"
             )
-        grounded = _grounded(isolation)
+        grounded = isolation.grounded
         first = len(nodes)
         places = [place for place in range(len(ends)) if place != grounded]
         behind = first + len(places)
@@ -236,14 +235,6 @@ def samples(instance: Alone, frequency_hz: NDArray[np.float64], answers: Sequenc
         inner=tuple(isolation.inner[k] for k in exists),
         inner_gain=inner_gain,
     )
-
-
-def _grounded(isolation: Isolation) -> int | None:
-    """Give the place of the terminal that may be ground itself, where not all are driven."""
-    if not isolation.driven:
-        return None
-    rest = [k for k, volt in enumerate(isolation.voltages) if volt == 0.0 and k not in isolation.driven]
-    return rest[0] if rest else None
 
 
 def _source(letter: str, name: str, nodes: tuple[int, int], dc: float) -> Element:
