@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from typing import Literal
+
 from msgspec import Struct
 
 
@@ -14,6 +16,13 @@ class MeasuredCurve(Struct, frozen=True):
     phase_deg: tuple[float, ...] | None
 
 
+class Want(Struct, frozen=True):
+    """A figure that is wanted: margin in degrees, gain_margin in dB, f_u, f_h or f_l in Hz."""
+
+    quantity: Literal["margin", "gain_margin", "f_u", "f_h", "f_l"]
+    value: float
+
+
 class Asked(Struct, frozen=True):
     """The questions of one review; each field is one option, and empty where it was not asked.
 
@@ -21,7 +30,8 @@ class Asked(Struct, frozen=True):
     swing_v: peak at the output in V for the large-signal figures, None for 1 V. outputs: further outputs, as typed.
     impedances: input and output impedance are wanted. unity: who sets unity gain and margin is wanted wherever there is
     one. peaking: who makes the peaking is wanted. loops: places at which the return ratio is wanted, as typed.
-    miller: Miller's factor over frequency, for formats that can show it.
+    miller: Miller's factor over frequency, for formats that can show it. wants: figures that the
+    amplifier should have.
     """
 
     at_hz: tuple[float, ...] = ()
@@ -33,6 +43,7 @@ class Asked(Struct, frozen=True):
     peaking: bool = False
     loops: tuple[str, ...] = ()
     miller: bool = False
+    wants: tuple[Want, ...] = ()
 
 
 NOTHING_ASKED = Asked()

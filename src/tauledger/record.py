@@ -621,26 +621,30 @@ class ModesFacts(Struct, frozen=True):
 
 
 class ImpedancePoint(Struct, frozen=True):
-    """An impedance at one frequency ("mid-band" or "f_H") as R in parallel with C, exact; negative farad: inductive.
+    """An impedance at one frequency ("mid-band" or "f_H"), and as R in parallel with C; negative farad: inductive.
 
-    simulated_*: ngspice's own, None where nothing was simulated.
+    exact and simulated; None where it is not finite, where no current is in phase, at DC, or where nothing was
+    simulated.
     """
 
     at: str
     hz: float
-    real_ohm: float
-    imag_ohm: float
+    real_ohm: float | None
+    imag_ohm: float | None
     parallel_ohm: float | None
     parallel_farad: float | None
     simulated_real_ohm: float | None = None
     simulated_imag_ohm: float | None = None
+    simulated_parallel_ohm: float | None = None
+    simulated_parallel_farad: float | None = None
 
 
 class ImpedanceFacts(Struct, frozen=True):
     """An impedance that the drive or the load sees.
 
-    side: input or output. of: the source, or the output. says: what is in it and what is left out. left_out: names.
-    hand_ohm, hand_text: at mid-band by looking in, None and the reason where no rule gives it. curve: over the sweep.
+    side: input or output. of: the source, or the output. says: what is in it or left out, by name in left_out.
+    hand_ohm, hand_text: at mid-band by looking in; None and why where no rule gives it. Curves over frequency_hz: size
+    in ohm and angle; None where it is not finite.
     """
 
     side: str
@@ -651,10 +655,10 @@ class ImpedanceFacts(Struct, frozen=True):
     hand_ohm: float | None
     hand_text: str
     frequency_hz: tuple[float, ...]
-    exact_ohm: tuple[float, ...]
-    exact_deg: tuple[float, ...]
-    simulated_ohm: tuple[float, ...] | None
-    simulated_deg: tuple[float, ...] | None
+    exact_ohm: tuple[float | None, ...]
+    exact_deg: tuple[float | None, ...]
+    simulated_ohm: tuple[float | None, ...] | None
+    simulated_deg: tuple[float | None, ...] | None
 
 
 class AddedPart(Struct, frozen=True):

@@ -64,6 +64,10 @@ def answer(found: Review, subject: Subject, asked: Asked) -> Review:
         from tauledger.answers.loop import with_loops
 
         found = with_loops(found, subject, asked.loops)
+    if asked.wants:
+        from tauledger.answers.wants import want_facts
+
+        found = replace(found, wants=want_facts(found, subject, asked.wants))
     return found
 
 

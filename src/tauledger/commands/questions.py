@@ -26,6 +26,9 @@ _OPTIONS = (
         "--loop", "loop", metavar="NAME", multiple=True, help="Return ratio at M6, R3, E2 or Q1.base; repeatable."
     ),
     click.option(
+        "--want", "want", metavar="F=V", multiple=True, help="What margin=60 takes; gain_margin, f_u, f_h, f_l too."
+    ),
+    click.option(
         "--curve", "curve", metavar="CSV", help="Set a measured curve (f_hz,gain_db,phase_deg) beside ngspice."
     ),
 )
@@ -43,9 +46,11 @@ def questions(command: Command) -> Command:
         swing: str | None,
         loop: tuple[str, ...],
         curve: str | None,
+        want: tuple[str, ...],
         **others: object,
     ) -> ExitCode:
         from tauledger.asked import Asked
+        from tauledger.commands.wanted import wanted
 
         asked = Asked(
             at_hz=tuple(hertz("--at", given) for given in at),
@@ -54,6 +59,7 @@ def questions(command: Command) -> Command:
             swing_v=None if swing is None else _volt(swing),
             curve=None if curve is None else _measured(curve),
             loops=loop,
+            wants=wanted(want),
         )
         return command(asked=asked, **others)
 

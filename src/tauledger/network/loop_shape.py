@@ -18,7 +18,7 @@ from tauledger.network.spectrum import frequency_grid
 
 RatioAt = Callable[[Real], Complex]
 
-POINTS_PER_DECADE = 40
+POINTS_PER_DECADE = 20
 HIGHEST_HZ = 1e12
 NARROWED_TO = 17
 ROUNDS = 7
@@ -100,17 +100,20 @@ def loop_shape(ratio_at: RatioAt, frequency_hz: Real, at_hz: float) -> LoopShape
         at_reference=at_reference,
         crossings=tuple(crossings),
         turns=_turns(ratio_at, frequency_hz, phase),
-        f_high_hz=edge_above(lambda f: np.abs(ratio_at(f)), frequency_hz, at_hz, abs(at_reference)),
+        f_high_hz=edge_above(lambda f: np.abs(ratio_at(f)), frequency_hz, at_hz, abs(at_reference), np.abs(ratio)),
     )
 
 
-def edge_above(size_at: Callable[[Real], Real], frequency_hz: Real, at_hz: float, reference: float) -> float | None:
+def edge_above(
+    size_at: Callable[[Real], Real], frequency_hz: Real, at_hz: float, reference: float, size: Real | None = None
+) -> float | None:
     """Give the first frequency in Hz above at_hz where a magnitude falls 3 dB below `reference`; None where none.
 
-    size_at: the magnitude at any frequencies (k,) in Hz.
+    size_at: the magnitude at any frequencies (k,) in Hz. size: it at frequency_hz, where it is known.
     """
-    above = frequency_hz[frequency_hz > at_hz]
-    low = size_at(above) < HALF_POWER * reference
+    over = frequency_hz > at_hz
+    above = frequency_hz[over]
+    low = (size_at(above) if size is None else size[over]) < HALF_POWER * reference
     if not np.any(low) or bool(low[0]):
         return None
     k = int(np.argmax(low))
@@ -140,7 +143,7 @@ def turn_near(ratio: Complex, frequency_hz: Real) -> Turn | None:
         return None
     u = np.log(frequency_hz)
     size = np.polyfit(u - u.mean(), np.log(np.abs(ratio)), len(u) - 1)
-    return Turn(found, float(np.polyval(size, np.log(found) - u.mean())) * 20.0 / np.log(10.0))
+    return Turn(found, float(np.polyval(size, np.log(found) - u.mean()) * 20.0 / np.log(10.0)))
 
 
 def _root(value: Real, frequency_hz: Real) -> float | None:

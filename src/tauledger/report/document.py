@@ -30,13 +30,13 @@ from tauledger.report.sentences import (
 )
 from tauledger.report.tables import at as frequencies
 from tauledger.report.tables import curve as measured
-from tauledger.report.tables import helps, large_signal, lower, outside, phase, roots, setting, unity, upper, way
+from tauledger.report.tables import helps, large_signal, lower, outside, phase, roots, setting, unity, upper, wants, way
 from tauledger.report.tables.grid import Grid
 from tauledger.report.tables.working import Lines, working
 from tauledger.report.wording import EDGE, fraction, move, withheld
 from tauledger.report.working import node_title
 
-FigureName = Literal["time", "shares", "way", "bode", "stages", "plane"]
+FigureName = Literal["time", "shares", "way", "bode", "stages", "plane", "loop"]
 
 
 class Prose(Struct, frozen=True):
@@ -110,6 +110,7 @@ def document(review: Review) -> Document:
         _way(review),
         _bode(review),
         _causes(review),
+        _loops(review),
         _helps(review),
         _large_signal(review),
         _own(review),
@@ -119,6 +120,7 @@ def document(review: Review) -> Document:
         _devices(review),
         _roots(review),
         _phase(review),
+        _wants(review),
         _lines(review),
         _proof(review),
         _trust(review),
@@ -274,6 +276,25 @@ def _causes(review: Review) -> Section:
     return Section("causes", "Why paper and simulation differ", tuple(blocks))
 
 
+def _loops(review: Review) -> Section:
+    if not review.loops:
+        return Section("loop", "", ())
+    from tauledger.report.tables import loop
+
+    blocks: list[Block] = []
+    for k, facts in enumerate(review.loops):
+        blocks.append(loop.figures(facts))
+        if k == 0:
+            caption = f"Return ratio T {facts.where}: |T| = 1 at the dot, where the phase is above -180° by the margin."
+            blocks.append(Picture("loop", caption))
+        told = [Item(lead, text) for lead, texts in loop.told(facts) for text in texts]
+        if told:
+            blocks.append(Items(tuple(told)))
+        if facts.estimates:
+            blocks.append(loop.estimates(facts))
+    return Section("loop", "Feedback", tuple(blocks), ("Return ratio",))
+
+
 def _items(causes: Iterable[CauseFacts], review: Review) -> tuple[Item, ...]:
     return tuple(
         Item(f"{EDGE.get(cause.quantity, cause.quantity)} {move(cause.effect)}", cause_text(cause, review))
@@ -370,6 +391,12 @@ def _roots(review: Review) -> Section:
 
 def _phase(review: Review) -> Section:
     return Section("phase", "Phase used up at unity gain", phase.budget_grids(review))
+
+
+def _wants(review: Review) -> Section:
+    verdicts = (Prose(f"Wanted: {wants.verdict(want)}.") for want in review.wants)
+    blocks: tuple[Block, ...] = (*verdicts, *wants.what_it_takes(review))
+    return Section("wants", "What it takes", blocks)
 
 
 def _lines(review: Review) -> Section:

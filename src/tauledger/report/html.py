@@ -15,6 +15,7 @@ from msgspec import Struct
 
 from tauledger.record import Review
 from tauledger.report.charts.style import PALETTE
+from tauledger.report.cursor import cursor
 from tauledger.report.document import Document, Picture, document
 from tauledger.report.layout import BEFORE_A_UNIT
 from tauledger.report.terms import unexplained
@@ -51,13 +52,15 @@ def to_html(review: Review, *, tell: Callable[[str], None] = lambda _: None) -> 
             if isinstance(block, Picture):
                 tell(f"drawing: {section.title.lower()}")
                 pictures[block.name] = _pictures(block.name, review)
+    moving = cursor(review)
     text = template("page.html.j2").render(
         page=page,
         review=review,
         pictures=pictures,
         terms=_terms(page),
         style=style(),
-        script=read("page.js"),
+        cursor=moving,
+        script=read("page.js") if moving is None else f"{read('page.js')}{read('cursor.js')}{moving.data});\n",
         kind=lambda block: type(block).__name__,
     )
     # A path may hold bytes that are no text; they are shown as such.
@@ -122,7 +125,10 @@ def _pictures(name: str, review: Review) -> tuple[Drawn, ...]:
     if name == "plane":
         both = plane_chart(review)
     else:
-        draw = {"time": time_chart, "shares": share_chart, "way": way_chart, "bode": bode_chart}[name]
+        from tauledger.report.charts.loop import loop_chart
+
+        charts = {"time": time_chart, "shares": share_chart, "way": way_chart, "bode": bode_chart, "loop": loop_chart}
+        draw = charts[name]
         both = draw(review).replace('class="chart"', 'class="chart wide"', 1)
         both += draw(review, narrow=True)
     return (Drawn("", subscripted(both)),) if both else ()

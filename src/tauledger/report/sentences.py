@@ -267,7 +267,7 @@ def _what_limits(review: Review) -> str:
     text = (
         f"{sentence(node.title)[:-1]}: R {number(node.resistance_hand_ohm, 'Ω')} by hand "
         f"({number(node.resistance_exact_ohm, 'Ω')} exact){inner}, C {number(node.capacitance_f, 'F')}, "
-        f"R·C {number(node.time_constant_s, 's')}, which is {fraction(part)} of the sum over all nodes."
+        f"R·C {number(node.time_constant_s, 's')}, which is {_of_the_sum(part, whole)}."
     )
     terms = node.working.capacitances if node.working else ()
     largest = max(terms, key=lambda term: term_seconds(term, node), default=None)
@@ -277,6 +277,13 @@ def _what_limits(review: Review) -> str:
         times = "" if abs(largest.factor - 1.0) < 0.05 else f", which counts {largest.factor:.4g} times there"
         text += f" The largest piece of it is {title}, {size}{times}."
     return text
+
+
+def _of_the_sum(part: float, whole: float) -> str:
+    """Say how much of the sum a node takes; where others are negative it may be more than all of it."""
+    if part <= 1.0:
+        return f"{fraction(part)} of the sum over all nodes"
+    return f"more than the sum over all nodes, {number(whole, 's')}, from which negative ones take away"
 
 
 def _what_sets_the_lower_edge(review: Review) -> str:

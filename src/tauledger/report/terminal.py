@@ -57,6 +57,7 @@ def render(
         paper.own_page(review),
         curve.measured_curve(review),
         reasons.causes(review, verbose=verbose),
+        *_loops(review),
         upper.upper_budget(review, verbose=verbose),
         steps.steps(review, "f_high"),
         steps.methods_table(review, "f_high") if verbose else Section(()),
@@ -78,12 +79,20 @@ def render(
     return _painted(lines) if color else "".join(f"{line.text}\n" for line in lines)
 
 
-def _unity_budget(review: Review) -> tuple[Section, ...]:
-    if review.phase_budget is None:
+def _loops(review: Review) -> tuple[Section, ...]:
+    if not review.loops:
         return ()
-    from tauledger.report import phase
+    from tauledger.report import loop
 
-    return (phase.phase_used(review),)
+    return (loop.loops(review),)
+
+
+def _unity_budget(review: Review) -> tuple[Section, ...]:
+    if review.phase_budget is None and not review.wants:
+        return ()
+    from tauledger.report import phase, wants
+
+    return phase.phase_used(review), wants.what_it_takes(review)
 
 
 def _painted(lines: Sequence[Line]) -> str:

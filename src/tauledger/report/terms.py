@@ -68,6 +68,10 @@ TERMS = {
         "transconductance from gate and from body, output resistance, gate-source and gate-drain capacitance, and the "
         "frequency where the current gain is one."
     ),
+    "Return ratio": (
+        "what comes back to a source, or past a wire, for one unit that it sends out. T large: the "
+        "feedback elements make the gain, ideal gain A∞. T small: the gain is what leaks past, feedthrough A0."
+    ),
     "Agreement": (
         "the largest relative difference between the response of the rebuilt network and the sweep of ngspice."
     ),

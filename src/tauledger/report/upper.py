@@ -12,6 +12,7 @@ from tauledger.report.wording import (
     NO_NUMBER,
     SOLVED,
     amount,
+    by_loop,
     group_delay,
     move,
     number,
@@ -54,7 +55,7 @@ def upper_budget(review: Review, *, verbose: bool = False) -> Section:
     if any(_mark(node) == SOLVED for node in shown):
         blocks.append(Prose("solved exactly: none of the rules fits this node", lead=f"  {SOLVED} "))
     if any(_mark(node) == LOOP for node in shown):
-        blocks.append(Prose("R0/(1 + T) or branches by 1 − K, with T and K of the solved network", lead=f"  {LOOP} "))
+        blocks.append(Prose(by_loop(review), lead=f"  {LOOP} "))
     if review.budget.upper:
         halves, delay = any(n.image for n in first), group_delay(review)
         blocks.append(Prose(_sums(review.budget.upper, halves=halves, delay=delay), lead="  "))

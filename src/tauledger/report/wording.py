@@ -154,6 +154,14 @@ def group_delay(review: Review) -> str:
     return "group delay without lines" if any(part.kind == "line" for part in review.parts) else "group delay"
 
 
+def by_loop(review: Review) -> str:
+    """Say what the mark of a resistance by loop or branch form means; inside a feedback loop such rows only rank."""
+    told = "R0/(1 + T) or branches by 1 − K, with T and K of the solved network"
+    if any(facts.found for facts in review.loops):
+        told += "; divided by 1 + T of the feedback loop R·C ranks nodes, but f_H follows from the loop"
+    return told
+
+
 AGREEMENT_WARNS = 1e-6
 AGREEMENT_FAILS = 1e-3
 

@@ -47,9 +47,9 @@ def bode_chart(review: Review, *, narrow: bool = False) -> str:
         upper.set_ylim(bottom, top)
         upper.set_ylabel(f"magnitude in {DECIBEL.get(review.midband.unit, 'dB')}")
         lower.set_ylabel("phase in degrees")
-        _degrees(lower)
+        degree_ticks(lower)
         lower.set_xlabel("frequency")
-        _hertz(lower, most=4 if narrow else 8)
+        hertz_ticks(lower, most=4 if narrow else 8)
         for axes in (upper, lower):
             axes.grid(axis="both")
             axes.set_axisbelow(True)
@@ -80,7 +80,7 @@ def _magnitude_range(review: Review, seen: Shown) -> tuple[float, float]:
     if unity_hz(review) is not None:
         bottom = max(min(values), min(bottom, -BELOW_UNITY_DB))
     room = 0.08 * (top - bottom) or 1.0
-    return top + room, bottom - 3.2 * room
+    return top + room, bottom - 5.0 * room
 
 
 def _measured(upper: Axes, lower: Axes, review: Review, first: float, last: float) -> None:
@@ -111,7 +111,7 @@ def _measured(upper: Axes, lower: Axes, review: Review, first: float, last: floa
         lower.plot(frequency, [degrees + off + turns for degrees, off in by_phase], **look)
 
 
-def _degrees(axes: Axes) -> None:
+def degree_ticks(axes: Axes) -> None:
     from matplotlib.ticker import MultipleLocator
 
     low, high = axes.get_ylim()
@@ -119,7 +119,7 @@ def _degrees(axes: Axes) -> None:
     axes.yaxis.set_major_locator(MultipleLocator(step))
 
 
-def _hertz(axes: Axes, *, most: int) -> None:
+def hertz_ticks(axes: Axes, *, most: int) -> None:
     from matplotlib.ticker import FuncFormatter, LogLocator, NullLocator
 
     first, last = axes.get_xlim()
@@ -169,12 +169,12 @@ def _unity_gain(upper: Axes, lower: Axes, review: Review) -> None:
 
 
 def _roots(axes: Axes, roots: tuple[Root, ...], first: float, last: float, *, narrow: bool) -> None:
-    """Mark poles and zeros on two lines at the foot of the magnitude; names step aside where marks come close.
+    """Mark poles and zeros on two lines at the foot of the magnitude; where marks are close, every other name is higher.
 
-    On a small screen there is no room aside: of marks close to each other the first has its name.
+    On a small screen there is no room for two names: of marks close to each other the first has its name.
     """
     transform = axes.get_xaxis_transform()
-    for is_pole, height in ((True, 0.045), (False, 0.17)):
+    for is_pole, height in ((True, 0.04), (False, 0.23)):
         visible = [root for root in roots if root.is_pole is is_pole and first <= root.size_hz <= last]
         level, before = 0, 0.0
         for root in sorted(visible, key=lambda root: root.size_hz):
@@ -194,13 +194,12 @@ def _roots(axes: Axes, roots: tuple[Root, ...], first: float, last: float, *, na
             )
             if narrow and close:
                 continue
-            sideways, upwards = ((0, 5), (7, -4))[level]
             axes.annotate(
                 root.name,
                 (root.size_hz, height),
-                (sideways, upwards),
+                (0, (5, 15)[level]),
                 xycoords=transform,
                 textcoords="offset points",
-                ha="left" if level else "center",
+                ha="center",
                 va="bottom",
             )

@@ -9,9 +9,11 @@ from collections.abc import Iterable, Mapping
 from tauledger.record import CapacitanceTerm, NodeRow, PartRow, ResistanceTerm, Review, WorkingLine
 from tauledger.report.tables.grid import Column, Grid, GridRow, columns
 from tauledger.report.wording import (
+    LOOP,
     NO_NUMBER,
     SOLVED,
     amount,
+    by_loop,
     fraction,
     move,
     number,
@@ -61,12 +63,11 @@ def budget(review: Review) -> Grid:
         name = "Sum over all nodes of the signal path" if others else "Sum"
         cells = (name, "", "", "", number(sums.path_sum_s, "s"), _exact_sum(review), "100 %", "")
         rows.append(GridRow(cells, "sum"))
-    solved = any(node.working is not None and node.working.source == "solved" for node in nodes)
     return Grid(
         "Time-constant budget of the upper edge, by signal node",
         BUDGET_COLUMNS,
         tuple(rows),
-        " ".join(_remarks(nodes, review, solved=solved)),
+        " ".join(_remarks(nodes, review)),
     )
 
 
@@ -84,7 +85,7 @@ def resistors_at(terms: Iterable[ResistanceTerm], review: Review) -> tuple[str, 
     return tuple(word for word in dict.fromkeys(words) if word.rsplit(".", 1)[-1].casefold() in known)
 
 
-def _remarks(nodes: Iterable[NodeRow], review: Review, *, solved: bool) -> list[str]:
+def _remarks(nodes: Iterable[NodeRow], review: Review) -> list[str]:
     """Say what must be known to add the table up."""
     told = []
     if any(len(places(node)) > 1 for node in nodes):
@@ -92,8 +93,16 @@ def _remarks(nodes: Iterable[NodeRow], review: Review, *, solved: bool) -> list[
             "R of a node is that of the first place named below it, where most of its R·C stands; the places face "
             "different resistances, and C of the node is its R·C over that R. C adds up in each place, R·C all through."
         )
-    if solved:
+    marks = {_mark(node) for node in nodes}
+    if f" {SOLVED}" in marks:
         told.append(f"{SOLVED} solved exactly: none of the rules fits this node.")
+    if f" {LOOP}" in marks:
+        told.append(f"{LOOP} {by_loop(review)}.")
+    if any((node.time_constant_s or 0.0) < 0.0 for node in nodes):
+        told.append(
+            "A negative R·C, of a capacitance whose far end moves more than its near one, takes away from the sum: "
+            "the others may be more than 100 % of it."
+        )
     least = _SEEN * abs(whole_s(review))
     for part in review.parts:
         seconds = part.time_constant_s or 0.0
@@ -194,13 +203,12 @@ def _node_rows(nodes: Iterable[NodeRow], review: Review) -> list[GridRow]:
     whole = whole_s(review)
     rows: list[GridRow] = []
     for node in nodes:
-        solved = f" {SOLVED}" if node.working is not None and node.working.source == "solved" else ""
         cost = node.per_farad.f_high
         rows.append(
             GridRow(
                 (
                     node_title(node),
-                    number(node.resistance_hand_ohm, "Ω") + solved,
+                    number(node.resistance_hand_ohm, "Ω") + _mark(node),
                     number(node.resistance_exact_ohm, "Ω"),
                     number(node.capacitance_f, "F"),
                     number(node.time_constant_s, "s"),
@@ -213,6 +221,12 @@ def _node_rows(nodes: Iterable[NodeRow], review: Review) -> list[GridRow]:
         )
         rows.extend(_place_rows(node, review, titles, whole))
     return rows
+
+
+def _mark(node: NodeRow) -> str:
+    """Mark a resistance that paper alone does not give."""
+    source = node.working.source if node.working is not None else "rule"
+    return {"solved": f" {SOLVED}", "loop": f" {LOOP}", "branch": f" {LOOP}"}.get(source, "")
 
 
 def _place_rows(node: NodeRow, review: Review, titles: Mapping[str, str], whole: float) -> list[GridRow]:

@@ -1,0 +1,298 @@
+"""Loop gain without cutting the loop: return ratio, margins, ideal gain and closed loop, exact beside ngspice.
+
+T is taken where the user names it, or at the loop that is found around the amplifier: at the wire by which feedback
+enters its first transistor, or at the input source of a macromodel. `loop_places.py` says which place a name means.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+
+import numpy as np
+from msgspec import Struct
+from msgspec.structs import replace
+
+from tauledger.answers.answer import Subject
+from tauledger.answers.double_injection import injected_ratio
+from tauledger.answers.loop_places import Place, closing_source, find_places, input_source, named_place
+from tauledger.answers.macromodel import amplifier, noise_gain
+from tauledger.compose.setting import unit_of
+from tauledger.errors import NetworkError
+from tauledger.hand.feedback import hand_loop
+from tauledger.hand.ideal_gain import ideal_gain
+from tauledger.network.loop_shape import (
+    Crossing,
+    LoopShape,
+    Turn,
+    edge_above,
+    loop_grid,
+    loop_shape,
+    margins_near,
+    turn_near,
+)
+from tauledger.network.return_ratio import Opening, asymptotic, checked, return_ratio
+from tauledger.network.solve import Real, on_axis, response
+from tauledger.network.spectrum import pole_frequencies
+from tauledger.numbers import Numbers
+from tauledger.record import LoopCurve, LoopEstimate, LoopFacts, LoopStageFacts, Review
+
+AROUND = np.array([0.97, 0.985, 1.0, 1.015, 1.03])
+CHECKED_AT = np.array([0.1, 1.0, 10.0])
+CURVE_POINTS = 240
+WORTH_TELLING = 0.02
+OPEN_BELOW = 1e4
+FAR_BELOW = 1e3
+COARSE = 4
+
+
+class _Simulated(Struct, frozen=True):
+    """What the double injection gives: |T| at mid-band, crossover and gain margin; None where it is not."""
+
+    ratio: complex | None = None
+    crossing: Crossing | None = None
+    turn: Turn | None = None
+
+
+def with_loops(found: Review, subject: Subject, asked: Sequence[str]) -> Review:
+    """Give the review with the loops that were asked for, or with the one found around the amplifier.
+
+    Raises InputError where a name is no place at which a return ratio can be taken.
+    """
+    numbers = subject.numbers
+    places = [named_place(numbers, name) for name in asked] if asked else find_places(numbers, subject.explanation)
+    if not places:
+        return found
+    taken = [_loop(found, subject, place, alone=len(places) == 1) for place in places]
+    if subject.engine is not None and numbers.circuit is not None:
+        # the engine is to answer for the circuit of this review again
+        subject.engine.bias(numbers.circuit, ())
+    return replace(
+        found,
+        loops=(*found.loops, *(facts for facts, _ in taken)),
+        loop_curves=(*found.loop_curves, *(curve for _, curve in taken)),
+    )
+
+
+def _loop(found: Review, subject: Subject, place: Place, *, alone: bool) -> tuple[LoopFacts, LoopCurve]:
+    numbers = subject.numbers
+    opening = place.opening
+    # the network of a wire is closed: a pole of T lies lower than all of its own, by 1 + T
+    below = OPEN_BELOW if opening.kind == "wire" else 1.0
+    grid = loop_grid(
+        pole_frequencies(opening.whole) / below, pole_frequencies(opening.whole), pole_frequencies(opening.network)
+    )
+    at_hz = _reference(numbers, opening, float(grid[0]))
+    shape = loop_shape(lambda hz: return_ratio(opening, on_axis(hz)), grid, at_hz)
+    simulated = _simulate(subject, place, shape)
+    crossover, lower, turn = shape.crossover, shape.lower_crossover, shape.gain_margin
+    t = shape.at_reference
+    facts = LoopFacts(
+        loop=place.name,
+        kind=opening.kind,
+        where=place.where,
+        found=place.found,
+        through=place.path,
+        at_hz=at_hz,
+        return_ratio_real=t.real,
+        return_ratio_imag=t.imag,
+        return_ratio_simulated=None if simulated.ratio is None else abs(simulated.ratio),
+        crossover_hz=crossover.hz if crossover else None,
+        phase_margin_deg=crossover.phase_margin_deg if crossover else None,
+        crossover_simulated_hz=simulated.crossing.hz if simulated.crossing else None,
+        phase_margin_simulated_deg=simulated.crossing.phase_margin_deg if simulated.crossing else None,
+        gain_margin_db=-turn.gain_db if turn else None,
+        gain_margin_at_hz=turn.hz if turn else None,
+        gain_margin_simulated_db=-simulated.turn.gain_db if simulated.turn else None,
+        lower_crossover_hz=lower.hz if lower else None,
+        lower_phase_margin_deg=None if lower is None else 360.0 - lower.phase_margin_deg,
+        open_edge_hz=shape.f_high_hz,
+        unit=unit_of(numbers),
+    )
+    facts = _with_gains(facts, numbers, place, at_hz)
+    facts = _with_hand(facts, subject, place, at_hz)
+    facts = _with_noise_gain(facts, place, at_hz)
+    if place.found and alone:
+        facts = _with_estimates(facts, found, numbers, place, shape)
+    return replace(facts, says=_says(facts, place)), _curve(place, shape)
+
+
+def _reference(numbers: Numbers, opening: Opening, lowest_hz: float) -> float:
+    """Give mid-band; where that is DC and T is not defined there, the lowest frequency looked at."""
+    at_hz = numbers.midband.frequency_hz
+    if at_hz > 0.0:
+        return at_hz
+    try:
+        t = complex(return_ratio(opening, on_axis(0.0))[0])
+    except NetworkError:
+        return lowest_hz
+    return 0.0 if math.isfinite(abs(t)) and abs(t) < 1e15 else lowest_hz
+
+
+def _simulate(subject: Subject, place: Place, shape: LoopShape) -> _Simulated:
+    """Run the double injection where its T is the one here, at mid-band and around crossover and turn."""
+    circuit, engine = subject.numbers.circuit, subject.engine
+    if circuit is None or engine is None or place.cut is None:
+        return _Simulated()
+    crossover, turn = shape.crossover, shape.gain_margin
+    # ngspice has no AC at DC: far below the edge of T it is what it is there
+    groups = [np.array([shape.at_hz or (shape.f_high_hz or float(shape.frequency_hz[0]) * FAR_BELOW) / FAR_BELOW])]
+    groups += [one.hz * AROUND for one in (crossover, turn) if one is not None]
+    hz = np.concatenate(groups)
+    order = np.argsort(hz)
+    ratio = np.empty(len(hz), dtype=complex)
+    ratio[order] = injected_ratio(circuit, place.cut, engine, hz[order])
+    rest = ratio[1:].reshape(-1, len(AROUND))
+    found = _Simulated(complex(ratio[0]))
+    k = 0
+    if crossover is not None:
+        found = replace(found, crossing=margins_near(rest[0], groups[1], crossover.phase_margin_deg - 180.0))
+        k = 1
+    if turn is not None:
+        found = replace(found, turn=turn_near(rest[k], groups[1 + k]))
+    return found
+
+
+def _with_gains(facts: LoopFacts, numbers: Numbers, place: Place, at_hz: float) -> LoopFacts:
+    """Add ideal gain, feedthrough and closed loop, of the source itself or of the one that closes a wire's loop."""
+    opening, source = closing_source(numbers, place)
+    if opening is None:
+        return facts
+    try:
+        at = asymptotic(opening, on_axis(at_hz))
+    except NetworkError:
+        return facts
+    beside = (at_hz or float(abs(facts.crossover_hz or 1e3))) * CHECKED_AT
+    error = checked(opening, on_axis(beside), response(opening.whole, beside))
+    ideal, through, t = complex(at.ideal[0]), complex(at.feedthrough[0]), complex(at.return_ratio[0])
+    return replace(
+        facts,
+        source=source,
+        source_return_ratio=t.real,
+        ideal_gain=ideal.real if math.isfinite(abs(ideal)) else None,
+        feedthrough=through.real,
+        closed_gain=complex(at.closed[0]).real if math.isfinite(abs(ideal)) else through.real,
+        identity_error=error,
+    )
+
+
+def _with_hand(facts: LoopFacts, subject: Subject, place: Place, at_hz: float) -> LoopFacts:
+    """Add T₀ by hand where a transistor closes the loop and rules lead all the way round, and the ideal gain."""
+    numbers, hand = subject.numbers, subject.explanation.hand
+    if not place.device:
+        return facts
+    worked = hand_loop(numbers.network, numbers.devices, place.device, at_hz)
+    if worked is not None:
+        rows = tuple(LoopStageFacts(stage.node, float(stage.hand), float(stage.exact)) for stage in worked.stages)
+        facts = replace(facts, hand_return_ratio=float(worked.t0), hand_siemens=float(worked.siemens), hand_stages=rows)
+    if place.loop is None or hand is None:
+        return facts
+    ideal = ideal_gain(numbers.bands, numbers.devices, hand.stages, place.loop)
+    if ideal is None:
+        return facts
+    return replace(facts, hand_ideal_gain=float(ideal.value), hand_ideal_text=ideal.text)
+
+
+def _with_noise_gain(facts: LoopFacts, place: Place, at_hz: float) -> LoopFacts:
+    if place.amplifier is None:
+        return facts
+    own = amplifier(place.amplifier)
+    ratio = noise_gain(place.opening, place.amplifier, at_hz)
+    predicted = own.gain_bandwidth_hz / ratio if own.gain_bandwidth_hz and ratio else None
+    return replace(facts, noise_gain=ratio, amplifier=own, noise_gain_edge_hz=predicted)
+
+
+def _with_estimates(facts: LoopFacts, found: Review, numbers: Numbers, place: Place, shape: LoopShape) -> LoopFacts:
+    """Add what T says of f_H, one idea at a time, and why they part."""
+    high = found.f_high
+    if high is None or high.exact_hz is None or shape.f_high_hz is None:
+        return facts
+    reference = high.simulated_hz if high.simulated_hz is not None else high.exact_hz
+    t = abs(shape.at_reference)
+    opening = place.opening
+
+    def closed(hz: Real) -> Real:
+        ratio = return_ratio(opening, on_axis(hz))
+        return np.asarray(np.abs(ratio / (1.0 + ratio)), dtype=np.float64)
+
+    first = shape.f_high_hz * (1.0 + t)
+    loop = edge_above(
+        closed,
+        shape.frequency_hz,
+        shape.at_hz,
+        abs(shape.at_reference / (1.0 + shape.at_reference)),
+        np.abs(shape.ratio / (1.0 + shape.ratio)),
+    )
+    ideal = None
+    source = input_source(numbers, place)
+    if source is not None and facts.ideal_gain:
+        ideal = edge_above(
+            lambda hz: np.abs(asymptotic(source, on_axis(hz)).ideal),
+            shape.frequency_hz[::COARSE],
+            shape.at_hz,
+            abs(complex(asymptotic(source, on_axis(shape.at_hz)).ideal[0])),
+        )
+    steps: list[tuple[str, float | None]] = []
+    if facts.noise_gain_edge_hz is not None:
+        steps.append(("gain-bandwidth over noise gain", facts.noise_gain_edge_hz))
+    steps += [("edge of T times 1 + T", first), ("loop alone", loop)]
+    if ideal is not None:
+        steps.append(("ideal gain alone", ideal))
+    steps.append(("closed loop, exact", high.exact_hz))
+    estimates = tuple(LoopEstimate(name, hz, None if hz is None else hz / reference - 1.0) for name, hz in steps)
+    return replace(facts, estimates=estimates, why=_why(facts, first, loop, ideal, high.exact_hz))
+
+
+def _says(facts: LoopFacts, place: Place) -> tuple[str, ...]:
+    """Say what this T is where a reader may take it for another one."""
+    told = []
+    if facts.return_ratio_real < 0.0:
+        told.append("T is negative at mid-band: what comes back helps, positive feedback")
+    if facts.crossover_hz is None:
+        told.append("|T| does not fall through 1 above mid-band")
+    if facts.kind == "admittance":
+        told.append(
+            "the return ratio of an admittance: the reference is the element taken out, so that 1 + T is what it "
+            "does to the network, not what comes back round a loop"
+        )
+    elif facts.kind == "source" and place.device:
+        told.append(
+            f"it counts every loop through {place.device}, its own emitter or source resistor and what bridges it "
+            "included; no wire carries it alone, so that ngspice cannot be asked for it"
+        )
+    elif facts.kind == "wire" and not facts.found:
+        told.append("double injection: of what passes the wire both ways T is the part that is not reciprocal")
+    return tuple(told)
+
+
+def _why(facts: LoopFacts, first: float, loop: float | None, ideal: float | None, exact: float) -> tuple[str, ...]:
+    """Say what each step from one pole to the closed loop rests on, where it moves by more than 2 %."""
+    told = []
+    if ideal is not None and ideal < 0.5 * first:
+        return ("elements around the amplifier set f_H: with T → ∞ the gain would fall there by itself",)
+    if loop is not None and abs(loop / first - 1.0) > WORTH_TELLING and facts.phase_margin_deg is not None:
+        lag = facts.phase_margin_deg - 180.0
+        more = "a second pole is near" if lag < -90.0 else "a zero lifts it"
+        told.append(f"T has not one pole alone: {more}, where |T| = 1 its phase is {lag:.0f}° instead of -90°")
+    if loop is not None and abs(exact / loop - 1.0) > WORTH_TELLING:
+        told.append("what the loop does not hold adds poles and zeros of its own: source, load and feedback elements")
+    return tuple(told)
+
+
+def _curve(place: Place, shape: LoopShape) -> LoopCurve:
+    """Thin the curve out to what a picture shows, over the range in which T matters."""
+    size = 20.0 * np.log10(np.maximum(np.abs(shape.ratio), 1e-30))
+    kept = np.flatnonzero(size > -60.0)
+    if len(kept) < 2:
+        kept = np.arange(len(size))
+    first, last = int(kept[0]), int(kept[-1])
+    if shape.f_high_hz is not None and shape.at_hz == 0.0:
+        first = max(first, int(np.searchsorted(shape.frequency_hz, shape.f_high_hz / 100.0)) - 1)
+    every = max(1, (last - first) // CURVE_POINTS)
+    at = [*range(first, last, every), last]
+    return LoopCurve(
+        place.name,
+        tuple(float(shape.frequency_hz[k]) for k in at),
+        tuple(float(size[k]) for k in at),
+        tuple(float(shape.phase_deg[k]) for k in at),
+    )

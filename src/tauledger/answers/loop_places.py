@@ -1,0 +1,273 @@
+"""Where a return ratio is taken: what a name means, and the loop that is found without being asked for.
+
+"M6", "E2", "XU1.G1": the return ratio of that source. "R3": of its admittance. "Q1.base", "M1.g": the wire into that
+terminal. "XU1", folded: the source inside it that its two inputs control.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterable
+
+import numpy as np
+from msgspec import Struct
+from msgspec.structs import replace
+
+from tauledger.answers.double_injection import Cut, cut_into, cut_out_of
+from tauledger.circuit import GROUND, Circuit, Instance, fold
+from tauledger.devices.catalogue import linearise
+from tauledger.devices.family import Device
+from tauledger.devices.instances import elements_inside, macromodels
+from tauledger.devices.parts import Part
+from tauledger.errors import InputError, NetworkError
+from tauledger.explain import Explanation
+from tauledger.hand.feedback import LOOP_ABOVE, FoundLoop, find_loop
+from tauledger.network.assemble import Network
+from tauledger.network.return_ratio import (
+    BILATERAL,
+    CONTROLLED,
+    VOLTAGE_KINDS,
+    Opening,
+    at_admittance,
+    at_source,
+    at_wire,
+    return_ratio,
+)
+from tauledger.network.solve import on_axis, solve
+from tauledger.numbers import Numbers
+
+CARRIES_SIGNAL = 1e-9
+
+
+class Amplifier(Struct, frozen=True):
+    """An instance as an amplifier by itself: its parts, control pair and output pin, and the other pins."""
+
+    name: str
+    parts: tuple[Part, ...]
+    control: tuple[str, str]
+    output: str
+    others: tuple[str, ...]
+
+
+class Place(Struct, frozen=True):
+    """One place at which T is taken.
+
+    name: as the user gave it, or as they would. where: in words. cut: where ngspice injects to give the same T, None
+    where no wire carries it alone. device: the transistor at which a wire's loop is worked out by hand. path: nodes.
+    """
+
+    name: str
+    where: str
+    opening: Opening
+    cut: Cut | None = None
+    found: bool = False
+    device: str = ""
+    path: tuple[str, ...] = ()
+    amplifier: Amplifier | None = None
+    loop: FoundLoop | None = None
+
+
+def named_place(numbers: Numbers, name: str) -> Place:
+    """Give the place that a name means.
+
+    Raises InputError where it means none.
+    """
+    network = open_network(numbers)
+    device = next((one for one in numbers.devices if _is(one.name, name) and one.cell is not None), None)
+    owner, dot, terminal = name.rpartition(".")
+    if device is not None and device.terminals:
+        parts = _controlled(network, device.name)
+        return Place(device.name, f"gm of {device.name}", at_source(network, parts), device=device.name)
+    parts = _controlled(network, name)
+    if parts:
+        return _at_controlled(numbers, network, parts)
+    part = next((one for one in network.parts if _is(one.name, name) and one.kind in BILATERAL), None)
+    if part is not None:
+        return Place(part.name, f"admittance of {part.name}, against none", at_admittance(network, part))
+    instance = None if numbers.circuit is None else _instance(numbers.circuit, name)
+    if instance is not None:
+        return _at_instance(numbers, network, instance)
+    transistor = next((one for one in numbers.devices if dot and _is(one.name, owner) and one.terminals), None)
+    if transistor is not None:
+        return _into_terminal(numbers, transistor, terminal)
+    raise InputError(f"--loop {name}: no return ratio can be taken there", _known(numbers, network))
+
+
+def find_places(numbers: Numbers, explanation: Explanation) -> list[Place]:
+    """Find the loop around the amplifier, or those of its macromodels; none where there is none, or several."""
+    instances = [] if numbers.circuit is None else _folded(numbers, macromodels(numbers.circuit))
+    if instances:
+        return _loops_of_instances(numbers, instances)
+    hand = explanation.hand
+    if hand is None:
+        return []
+    network, at_hz = numbers.network, numbers.midband.frequency_hz
+    loop = find_loop(network, numbers.devices, hand.nodes, hand.stages, at_hz)
+    if loop is None:
+        return []
+    if not loop.node:
+        parts = _controlled(network, loop.owner)
+        return [_found(_at_controlled(numbers, network, parts))]
+    cut = None if numbers.circuit is None else cut_into(numbers.circuit, loop.owner, loop.node)
+    return [
+        Place(
+            f"{loop.owner}.{loop.word}",
+            f"wire into the {loop.word} of {loop.owner} ({loop.node})",
+            at_wire(network, loop.owner, loop.node),
+            cut,
+            found=True,
+            device=loop.device,
+            path=(loop.node, *loop.path),
+            loop=loop,
+        )
+    ]
+
+
+def closing_source(numbers: Numbers, place: Place) -> tuple[Opening | None, str]:
+    """Give the source for which the asymptotic gain formula is written: the place's own, or that of a wire's loop."""
+    if place.opening.kind != "wire":
+        return place.opening, place.where
+    if not place.device:
+        return None, ""
+    return at_source(numbers.network, _controlled(numbers.network, place.device)), f"gm of {place.device}"
+
+
+def input_source(numbers: Numbers, place: Place) -> Opening | None:
+    """Give the source whose ideal gain is that of the feedback elements: of a wire, the transistor that it leads to."""
+    if place.opening.kind != "wire":
+        return place.opening if place.opening.kind == "source" else None
+    parts = [] if place.loop is None else _controlled(numbers.network, place.loop.owner)
+    return at_source(numbers.network, parts) if parts else None
+
+
+def open_network(numbers: Numbers) -> Network:
+    """Give the network with every instance open, so that what is inside a macromodel has a name."""
+    folded = any(part.kind == "block" and part.label == "inside" for part in numbers.network.parts)
+    if not folded or numbers.circuit is None or numbers.bias is None or len(numbers.circuit.instances) < 2:
+        return numbers.network
+    parts = linearise(numbers.circuit, numbers.bias).parts
+    return Network.from_parts(parts, output=numbers.circuit.output)
+
+
+def _found(place: Place) -> Place:
+    return replace(place, found=True)
+
+
+def _is(own: str, given: str) -> bool:
+    return fold(own) == fold(given)
+
+
+def _controlled(network: Network, owner: str) -> list[Part]:
+    """Give the controlled parts of an owner, with those that stand in series for it ("E2'2")."""
+    return [part for part in network.parts if part.kind in CONTROLLED and _is(part.owner.partition("'")[0], owner)]
+
+
+def _at_controlled(numbers: Numbers, network: Network, parts: list[Part]) -> Place:
+    owner = parts[0].owner.partition("'")[0]
+    cut = None if numbers.circuit is None else cut_out_of(numbers.circuit, owner)
+    return Place(owner, f"source {owner}", at_source(network, parts), cut, amplifier=_lone(parts))
+
+
+def _lone(parts: list[Part]) -> Amplifier | None:
+    """A controlled voltage source with two live inputs, alone, is an amplifier without a pole."""
+    part = parts[0]
+    if len(parts) > 1 or part.kind not in VOLTAGE_KINDS or part.references or part.nodes[1] != GROUND:
+        return None
+    return Amplifier(part.owner, (part,), (part.nodes[2], part.nodes[3]), part.nodes[0], ())
+
+
+def _into_terminal(numbers: Numbers, device: Device, terminal: str) -> Place:
+    words = [t for t in device.terminals if t.word.startswith(fold(terminal))] if terminal else []
+    if len(words) != 1:
+        known = ", ".join(f"{device.name}.{t.word}" for t in device.terminals if t.outer != GROUND)
+        raise InputError(f"--loop {device.name}.{terminal}: no such terminal", f"wires there: {known}")
+    at = words[0]
+    where = f"wire into the {at.word} of {device.name} ({at.outer})"
+    opening = at_wire(numbers.network, device.name, at.outer)
+    cut = None if numbers.circuit is None else cut_into(numbers.circuit, device.name, at.outer)
+    return Place(f"{device.name}.{at.word}", where, opening, cut)
+
+
+def _instance(circuit: Circuit, name: str) -> Instance | None:
+    wanted = {fold(name), "x" + fold(name)}
+    return next((one for one in circuit.instances[1:] if fold(one.name) in wanted), None)
+
+
+def _folded(numbers: Numbers, instances: Iterable[Instance]) -> list[Instance]:
+    names = {part.owner for part in numbers.network.parts if part.kind == "block"}
+    return [one for one in instances if one.name in names]
+
+
+def _at_instance(numbers: Numbers, network: Network, instance: Instance) -> Place:
+    """Give the source inside an instance that a pair of its pins controls."""
+    assert numbers.circuit is not None
+    elements = elements_inside(numbers.circuit, instance)
+    inside = [part for part in network.parts if fold(part.owner.partition("'")[0]) in elements]
+    names = {part.name for part in inside}
+    outer = {node for part in network.parts if part.name not in names for node in part.nodes} - {GROUND}
+    outer |= {numbers.network.port.plus, numbers.network.port.minus} - {GROUND, ""}
+    touched = {node for part in inside for node in part.nodes}
+    pins = tuple(node for node in network.unknowns[: network.n_nodes] if node in outer & touched)
+    moved = _moved(network, numbers.midband.frequency_hz)
+    sources = [part for part in inside if part.kind in CONTROLLED and not part.references]
+    inputs = [
+        part
+        for part in sources
+        if set(part.nodes[2:]) <= {*pins, GROUND} and part.nodes[2] != part.nodes[3] and set(part.nodes[2:]) & moved
+    ]
+    if len(inputs) != 1:
+        told = ", ".join(dict.fromkeys(part.owner.partition("'")[0] for part in sources)) or "none"
+        raise InputError(
+            f"--loop {instance.name}: no one source inside is controlled by its inputs", f"sources inside: {told}"
+        )
+    part = inputs[0]
+    owner = part.owner.partition("'")[0]
+    opening = at_source(network, _controlled(network, owner))
+    control = (part.nodes[2], part.nodes[3])
+    output = _output_pin(opening, [pin for pin in pins if pin not in control], numbers.midband.frequency_hz)
+    others = tuple(pin for pin in pins if pin not in (*control, output))
+    amplifier = Amplifier(instance.name, tuple(inside), control, output, others) if output else None
+    where = f"input source {owner.removeprefix(instance.name + '.')} of {instance.name}"
+    return Place(instance.name, where, opening, cut_out_of(numbers.circuit, owner), amplifier=amplifier)
+
+
+def _moved(network: Network, at_hz: float) -> set[str]:
+    """Name the nodes that the signal moves at mid-band."""
+    x = np.abs(solve(network, on_axis(at_hz)).x[0][: network.n_nodes])
+    least = CARRIES_SIGNAL * float(x.max(initial=0.0))
+    return {node for node, size in zip(network.unknowns, x, strict=False) if size > least}
+
+
+def _output_pin(opening: Opening, pins: list[str], at_hz: float) -> str:
+    """Name the pin that the source inside moves most."""
+    network = opening.network
+    driven = solve(replace(network, drive=opening.out.astype(complex)), on_axis(at_hz)).x[0]
+    size = {pin: abs(complex(driven[row])) for pin in pins if (row := network.index(pin)) is not None}
+    pin = max(size, key=lambda one: size[one], default="")
+    return pin if pin and size[pin] > 0.0 else ""
+
+
+def _loops_of_instances(numbers: Numbers, instances: list[Instance]) -> list[Place]:
+    """Give every macromodel around which there is negative feedback with T above 1 at mid-band."""
+    network = open_network(numbers)
+    found = []
+    for instance in instances:
+        try:
+            place = _at_instance(numbers, network, instance)
+            t = complex(return_ratio(place.opening, on_axis(numbers.midband.frequency_hz))[0]).real
+        except (InputError, NetworkError):
+            continue
+        if t > LOOP_ABOVE:
+            found.append(_found(place))
+    return found
+
+
+def _known(numbers: Numbers, network: Network) -> str:
+    devices = [one.name for one in numbers.devices if one.cell is not None and one.terminals]
+    sources = dict.fromkeys(
+        part.owner.partition("'")[0] for part in network.parts if part.kind in CONTROLLED and part.owner not in devices
+    )
+    named = [*devices, *sources]
+    some = ", ".join(named[:8]) + (", …" if len(named) > 8 else "")
+    wire = f"{devices[0]}.{numbers.devices[0].terminals[0].word}" if devices and numbers.devices[0].terminals else ""
+    also = f", a wire into a terminal ({wire})" if wire else ""
+    return f"name a source ({some or 'none here'}), a resistor, capacitor or inductor{also}"

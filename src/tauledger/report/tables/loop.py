@@ -1,0 +1,197 @@
+"""What the report says of a loop: rows of figures, the gain formula, the working by hand, and what T says of f_H."""
+
+from __future__ import annotations
+
+import math
+
+from tauledger.record import LoopFacts, LoopStageFacts
+from tauledger.report.tables.grid import Column, Grid, GridRow
+from tauledger.report.wording import NO_NUMBER, move, number
+
+METHODS = {
+    "gain-bandwidth over noise gain": "GBW over noise gain",
+    "edge of T times 1 + T": "edge of T · (1 + T)",
+    "loop alone": "T/(1 + T) alone",
+    "ideal gain alone": "ideal gain alone",
+    "closed loop, exact": "exact",
+}
+TIMES = 2.0
+
+
+def title(facts: LoopFacts) -> str:
+    """Say where T is taken and which nodes the loop passes."""
+    place = {"wire": "cut at the ", "admittance": "at the ", "source": "at "}[facts.kind] + facts.where
+    path = f"; it passes {', '.join(facts.through)}" if facts.through else ""
+    how = "; simulated by double injection" if facts.return_ratio_simulated is not None else ""
+    return f"{place}{path}{how}"
+
+
+def loop_rows(facts: LoopFacts) -> tuple[tuple[str, str, str], ...]:
+    """Give name, exact and simulated of T at mid-band, its crossovers and margins."""
+    at = "DC" if facts.at_hz == 0.0 else number(facts.at_hz, "Hz")
+    size = math.hypot(facts.return_ratio_real, facts.return_ratio_imag)
+    sign = "-" if facts.return_ratio_real < 0.0 else ""
+    decibel = f" ({20.0 * math.log10(size):.1f} dB)" if size > 0.0 else ""
+    ratio = facts.return_ratio_simulated
+    rows = [
+        (
+            f"return ratio T at {at}",
+            f"{sign}{_plain(size)}{decibel}",
+            NO_NUMBER if ratio is None else f"{sign}{_plain(ratio)}",
+        )
+    ]
+    if facts.crossover_hz is not None:
+        both = (number(facts.crossover_hz, "Hz"), number(facts.crossover_simulated_hz, "Hz"))
+        rows.append(("|T| = 1, crossover", *both))
+        rows.append(("phase margin", _degrees(facts.phase_margin_deg), _degrees(facts.phase_margin_simulated_deg)))
+    if facts.gain_margin_db is not None:
+        name = f"gain margin, at {number(facts.gain_margin_at_hz, 'Hz')}"
+        rows.append((name, _decibel(facts.gain_margin_db), _decibel(facts.gain_margin_simulated_db)))
+    if facts.lower_crossover_hz is not None:
+        rows.append(("|T| = 1 below mid-band", number(facts.lower_crossover_hz, "Hz"), ""))
+        rows.append(("phase margin there", _degrees(facts.lower_phase_margin_deg), ""))
+    return tuple(rows)
+
+
+def closed_text(facts: LoopFacts) -> tuple[str, ...]:
+    """Write H = A∞·T/(1 + T) + A0/(1 + T) with its figures; nothing where it is not defined."""
+    if facts.closed_gain is None or facts.source_return_ratio is None:
+        return ()
+    through = number(facts.feedthrough, facts.unit)
+    if facts.ideal_gain is None:
+        return (f"T is 0 there: the gain, {number(facts.closed_gain, facts.unit)}, is feedthrough A0 alone",)
+    own = facts.source != facts.where
+    other = f", T of {facts.source} {_plain(facts.source_return_ratio)}, its own resistances in it" if own else ""
+    return (
+        f"ideal A∞ {number(facts.ideal_gain, facts.unit)}, feedthrough A0 {through}; closed loop A∞·T/(1 + T) + "
+        f"A0/(1 + T) = {number(facts.closed_gain, facts.unit)}{other}",
+    )
+
+
+def hand_text(facts: LoopFacts) -> tuple[str, ...]:
+    """Write T₀ as a product from node to node."""
+    if facts.hand_return_ratio is None or facts.hand_siemens is None:
+        return ()
+    first, *others = facts.hand_stages
+    device = facts.source.removeprefix("gm of ")
+    product = " · ".join((f"{number(abs(first.hand), 'Ω')} ({first.node})", *map(_factor, others)))
+    exact = facts.source_return_ratio
+    off = "" if not exact else f" ({move(facts.hand_return_ratio / exact - 1.0)})"
+    value = f"{_plain(facts.hand_return_ratio)}{off}"
+    return (f"T0 = gm of {device} {number(abs(facts.hand_siemens), 'S')} · {product} = {value}",)
+
+
+def hand_ideal_text(facts: LoopFacts) -> tuple[str, ...]:
+    """Write the ideal gain by hand and the closed loop that T₀ makes of it."""
+    if facts.hand_ideal_gain is None:
+        return ()
+    ideal = f"A∞ = {facts.hand_ideal_text} = {number(facts.hand_ideal_gain, facts.unit)}"
+    t = facts.hand_return_ratio
+    if t is None or facts.closed_gain is None:
+        return (ideal,)
+    closed = facts.hand_ideal_gain * t / (1.0 + t)
+    return (
+        f"{ideal}; A∞·T0/(1 + T0) = {number(closed, facts.unit)} ({move(closed / facts.closed_gain - 1.0)}); "
+        f"β = 1/A∞ = {number(1.0 / facts.hand_ideal_gain, _inverse(facts.unit), 3)}",
+    )
+
+
+def instance_text(facts: LoopFacts) -> tuple[str, ...]:
+    """Say what an amplifier is by itself."""
+    own = facts.amplifier
+    if own is None or own.open_loop_gain is None:
+        return ()
+    told = [f"open-loop gain {_plain(abs(own.open_loop_gain))} ({20.0 * math.log10(abs(own.open_loop_gain)):.1f} dB)"]
+    if own.gain_bandwidth_hz is not None:
+        told.append(f"pole {number(own.first_pole_hz, 'Hz')}, gain-bandwidth {number(own.gain_bandwidth_hz, 'Hz')}")
+        second = "no second pole" if own.second_pole_hz is None else f"second pole {number(own.second_pole_hz, 'Hz')}"
+        told.append(second)
+    else:
+        told.append("no pole")
+    return (f"{own.name} by itself, unloaded: {', '.join(told)}",)
+
+
+def noise_text(facts: LoopFacts) -> tuple[str, ...]:
+    """Say the noise gain and the f_H that follows from it."""
+    if facts.noise_gain is None:
+        return ()
+    edge = facts.noise_gain_edge_hz
+    hand = "" if edge is None else f"; f_H = gain-bandwidth / noise gain = {number(edge, 'Hz')}"
+    return (f"noise gain 1/β {_plain(facts.noise_gain)}, its output over what comes back to its inputs{hand}",)
+
+
+def estimates_text(facts: LoopFacts) -> tuple[str, ...]:
+    """Say what T makes of f_H, one idea after the other."""
+    told = [
+        f"{METHODS.get(one.method, one.method)} {number(one.hz, 'Hz')} ({_apart(one.difference)})"
+        for one in facts.estimates
+        if one.method != "gain-bandwidth over noise gain"
+    ]
+    if not told or facts.open_edge_hz is None:
+        return ()
+    return (f"edge of T {number(facts.open_edge_hz, 'Hz')}; {'; '.join(told)}",)
+
+
+def told(facts: LoopFacts) -> tuple[tuple[str, tuple[str, ...]], ...]:
+    """Give all sentences with the word that leads them; the estimates of f_H have a table of their own there."""
+    return (
+        ("Gain", closed_text(facts)),
+        ("By hand", (*hand_text(facts), *hand_ideal_text(facts))),
+        ("Amplifier", (*instance_text(facts), *noise_text(facts))),
+        ("Why", facts.why),
+        ("Note", facts.says),
+    )
+
+
+def lines(facts: LoopFacts) -> tuple[tuple[str, tuple[str, ...]], ...]:
+    """Give all sentences, those on f_H among them."""
+    first, hand, amplifier, *others = told(facts)
+    return (first, hand, amplifier, ("f_H", estimates_text(facts)), *others)
+
+
+def figures(facts: LoopFacts) -> Grid:
+    """Give the figures of one loop as a table."""
+    heads = (Column("Return ratio T", "l"), Column("exact"), Column("simulated"))
+    rows = tuple(GridRow(cells) for cells in loop_rows(facts))
+    caption = title(facts)
+    return Grid(caption[:1].upper() + caption[1:], heads, rows)
+
+
+def estimates(facts: LoopFacts) -> Grid:
+    """Give what T says of f_H as a table; no rows where it says nothing."""
+    heads = (Column("What T says of f_H", "l"), Column("f_H"), Column("difference"))
+    rows = tuple(
+        GridRow((METHODS.get(one.method, one.method), number(one.hz, "Hz"), _apart(one.difference)))
+        for one in facts.estimates
+    )
+    edge = "" if facts.open_edge_hz is None else f"The edge of T itself is at {number(facts.open_edge_hz, 'Hz')}."
+    return Grid("Closed-loop f_H from the loop", heads, rows, edge)
+
+
+def _factor(stage: LoopStageFacts) -> str:
+    if "'" in stage.node:
+        owner = stage.node.partition("'")[0]
+        return f"{_plain(abs(stage.hand))} (r_π over r_π + r_b of {owner})"
+    return f"{_plain(abs(stage.hand))} ({stage.node})"
+
+
+def _plain(value: float) -> str:
+    """Write a ratio with four digits, large ones in full."""
+    return f"{float(f'{value:.4g}'):.0f}" if 1e4 <= abs(value) < 1e7 else f"{value:#.4g}".rstrip(".")
+
+
+def _apart(difference: float | None) -> str:
+    """Write how far an estimate is off: per cent, or how many times it is too high."""
+    return f"{1.0 + difference:.3g} times" if difference is not None and difference >= TIMES else move(difference)
+
+
+def _degrees(value: float | None) -> str:
+    return NO_NUMBER if value is None else f"{value:.1f}°"
+
+
+def _decibel(value: float | None) -> str:
+    return NO_NUMBER if value is None else f"{value:.1f} dB"
+
+
+def _inverse(unit: str) -> str:
+    return {"Ω": "S", "S": "Ω"}.get(unit, "")
