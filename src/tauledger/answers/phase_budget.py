@@ -5,6 +5,8 @@ from __future__ import annotations
 import math
 from collections.abc import Mapping, Sequence
 
+from msgspec import Struct
+
 from tauledger.answers.answer import Subject
 from tauledger.hand.compensated import CompensatedStage, dominant_hz, find_compensated_stage
 from tauledger.hand.compensation import (
@@ -50,7 +52,8 @@ def phase_budget(found: Review, subject: Subject) -> PhaseBudget | None:
     used_deg = HALF_TURN_DEG - margin
     used = phase_used(numbers.poles, midband_hz=mid, hz=hz, used_deg=used_deg)
     check(phase_identities(used, used_deg, rational=_rational(numbers)))
-    stage, by_hand = paper_roots(subject)
+    paper = paper_roots(subject)
+    stage, by_hand = paper.stage, paper.roots
     shown, rows = _rows(used, by_hand, subject.explanation.hand_poles, mid, hz)
     rest = [one for one in (*used.poles, *used.zeros) if one not in shown]
     return PhaseBudget(
@@ -65,18 +68,26 @@ def phase_budget(found: Review, subject: Subject) -> PhaseBudget | None:
     )
 
 
-def paper_roots(subject: Subject) -> tuple[CompensatedStage | None, tuple[HandRoot, ...]]:
-    """Give the compensated stage, and the poles and zeros that paper knows; nothing where the hand side is withheld."""
+class PaperRoots(Struct, frozen=True):
+    """The compensated stage, or None, and the poles and zeros that paper knows; halves: of one half circuit of two."""
+
+    stage: CompensatedStage | None
+    roots: tuple[HandRoot, ...]
+    halves: bool
+
+
+def paper_roots(subject: Subject) -> PaperRoots:
+    """Find the compensated stage, and the poles and zeros that paper knows; nothing where the hand side is withheld."""
     hand, numbers = subject.explanation.hand, subject.numbers
     if hand is None or numbers.bands.s_mid:
-        return None, ()
+        return PaperRoots(None, (), False)
     circuit = upper_circuit(numbers.bands, numbers.devices)
     whole = circuit.response
     mirror = find_mirror(circuit)
     if mirror is not None:
         circuit = half_circuit(circuit, mirror)
     stage = find_compensated_stage(circuit, _resistances(hand), whole)
-    return stage, hand_roots(circuit, stage)
+    return PaperRoots(stage, hand_roots(circuit, stage), mirror is not None)
 
 
 def _rational(numbers: Numbers) -> bool:

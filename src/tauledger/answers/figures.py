@@ -1,0 +1,142 @@
+"""The figures that a designer wants of a changed network: margins, unity gain frequency, band edges; exact, by ngspice.
+
+The reference stays at the unchanged mid-band frequency, and the operating point is held.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Callable
+
+import numpy as np
+from msgspec import Struct
+from numpy.typing import NDArray
+
+from tauledger.network.admittance import all_pass
+from tauledger.network.assemble import Network
+from tauledger.network.edges import HALF_POWER, at_same_frequency, find_edges
+from tauledger.network.lines import lumped
+from tauledger.network.midband import MidBand
+from tauledger.network.spectrum import pole_frequencies
+from tauledger.network.unity import HALF_TURN_DEG, find_unity
+from tauledger.solution import Sweep
+
+RunSweep = Callable[[NDArray[np.float64]], Sweep]
+# How far around the exact frequency ngspice is asked for the crossing, the closest first.
+AROUND = (1e-3, 1e-2, 1e-1)
+FAR_BELOW = 1e-6
+QUANTITIES = {"margin": "°", "gain_margin": "dB", "f_u": "Hz", "f_h": "Hz", "f_l": "Hz"}
+
+
+class Figures(Struct, frozen=True):
+    """f_u with its margins, band edges in Hz and mid-band gain in dB of one network; None for what it does not have.
+
+    gain_margin_at_hz: where the phase has turned by half. stable: no pole lies to the right of the axis.
+    """
+
+    f_unity_hz: float | None
+    phase_margin_deg: float | None
+    gain_margin_db: float | None
+    gain_margin_at_hz: float | None
+    f_high_hz: float | None
+    f_low_hz: float | None
+    gain_db: float
+    stable: bool
+
+    def of(self, quantity: str) -> float | None:
+        """Give one figure by the word with which it is asked for; what never comes to an end is infinite or 0.
+
+        None where the quantity means nothing: no unity gain frequency, or poles in the right half plane.
+        """
+        if not self.stable:
+            return None
+        unending = {"gain_margin": math.inf, "f_h": math.inf, "f_l": 0.0}
+        if quantity in ("margin", "gain_margin", "f_u") and self.f_unity_hz is None:
+            return None
+        found = {
+            "margin": self.phase_margin_deg,
+            "gain_margin": self.gain_margin_db,
+            "f_u": self.f_unity_hz,
+            "f_h": self.f_high_hz,
+            "f_l": self.f_low_hz,
+        }[quantity]
+        return unending.get(quantity) if found is None else found
+
+
+def figures_of(network: Network, midband: MidBand) -> Figures:
+    """Give all figures of a network, exact. midband: of the unchanged network.
+
+    Raises NetworkError where the network has no unique solution.
+    """
+    reference = at_same_frequency(network, midband)
+    edges = find_edges(network, reference)
+    unity = find_unity(network, reference, edges)
+    poles = pole_frequencies(all_pass(lumped(network)))
+    # below the floor measuring aids make poles of their own
+    poles = poles[np.abs(poles) > 2.0 * np.pi * midband.floor_hz]
+    return Figures(
+        f_unity_hz=unity.hz if unity else None,
+        phase_margin_deg=unity.phase_margin_deg if unity else None,
+        gain_margin_db=unity.gain_margin_db if unity else None,
+        gain_margin_at_hz=unity.gain_margin_at_hz if unity else None,
+        f_high_hz=edges.f_high.hz if edges.f_high else None,
+        f_low_hz=edges.f_low.hz if edges.f_low else None,
+        gain_db=20.0 * math.log10(abs(reference.gain)),
+        stable=bool(np.all(poles.real <= 0.0)),
+    )
+
+
+def simulated_figure(run: RunSweep, quantity: str, exact: Figures, midband: MidBand) -> float | None:
+    """Give one figure by ngspice's own response around the exact frequency; None where it has no crossing there.
+
+    run: asks the engine for the response of the changed circuit.
+    """
+    near = {
+        "margin": exact.f_unity_hz,
+        "gain_margin": exact.gain_margin_at_hz,
+        "f_u": exact.f_unity_hz,
+        "f_h": exact.f_high_hz,
+        "f_l": exact.f_low_hz,
+    }[quantity]
+    if near is None:
+        return None
+    # ngspice has no AC at 0 Hz; that far below the plateau has been reached
+    reference_hz = midband.frequency_hz or FAR_BELOW * min(near, exact.f_high_hz or near)
+    for width in AROUND:
+        frequency = np.array([reference_hz, near * (1.0 - width), near, near * (1.0 + width)])
+        response = run(np.sort(frequency)).response[np.argsort(np.argsort(frequency))]
+        found = _crossing(quantity, frequency[1:], response[1:] / response[0], abs(complex(response[0])))
+        if found is not None:
+            return _nearest_turn(found, exact.phase_margin_deg) if quantity == "margin" else found
+    return None
+
+
+def _crossing(quantity: str, frequency_hz: NDArray[np.float64], h: NDArray[np.complex128], gain: float) -> float | None:
+    """Interpolate on ln f between three points; h is |H| over mid-band, gain the latter."""
+    size, place = np.log(np.abs(h)), np.log(frequency_hz)
+    phase = np.unwrap(np.angle(h))
+    level = {"f_h": math.log(HALF_POWER), "f_l": math.log(HALF_POWER)}.get(quantity, -math.log(gain))
+    if quantity == "gain_margin":
+        turned = phase - math.pi * (2.0 * round((float(phase[1]) / math.pi - 1.0) / 2.0) + 1.0)
+        at = _zero(place, turned)
+        return None if at is None else -20.0 * math.log10(gain * math.exp(float(np.interp(at, place, size))))
+    at = _zero(place, size - level)
+    if at is None:
+        return None
+    if quantity == "margin":
+        return HALF_TURN_DEG + math.degrees(float(np.interp(at, place, phase)))
+    return math.exp(at)
+
+
+def _zero(place: NDArray[np.float64], value: NDArray[np.float64]) -> float | None:
+    """Give where a nearly straight line of three points passes zero, None where it does not."""
+    if value[0] * value[-1] > 0.0:
+        return None
+    k = 0 if value[0] * value[1] <= 0.0 else 1
+    a, b = float(value[k]), float(value[k + 1])
+    start, stop = float(place[k]), float(place[k + 1])
+    return start if a == b else start + (stop - start) * a / (a - b)
+
+
+def _nearest_turn(margin: float, exact: float | None) -> float:
+    return margin if exact is None else margin + 360.0 * round((exact - margin) / 360.0)

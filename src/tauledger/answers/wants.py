@@ -1,0 +1,140 @@
+"""Wanted figures: met with how much to spare, or what it takes, each candidate computed again and run in ngspice."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Mapping
+
+from msgspec.structs import replace
+
+from tauledger.answers.answer import Subject
+from tauledger.answers.changed_circuit import changed_circuit, is_card
+from tauledger.answers.figures import QUANTITIES, Figures, figures_of, simulated_figure
+from tauledger.answers.phase_budget import paper_roots
+from tauledger.answers.remedies import SMALLER_IS_BETTER, Found, attempt, shortfall, trials
+from tauledger.asked import Want
+from tauledger.circuit import Circuit
+from tauledger.engine.client import Engine
+from tauledger.errors import EngineError, InputError
+from tauledger.numbers import Numbers
+from tauledger.record import Remedy, Review, WantChange, WantFacts
+
+NOT_TRUSTED = "the rebuilt network is not the simulated circuit: nothing can be worked out on it"
+# A best value that brings less than this part of what is missing is no way at all.
+WORTH_A_ROW = 0.02
+
+
+def want_facts(found: Review, subject: Subject, wants: tuple[Want, ...]) -> tuple[WantFacts, ...]:
+    """Answer every wanted figure; afterwards the engine holds the unchanged circuit again.
+
+    Raises InputError where the circuit has no such figure at all; EngineError where ngspice fails on it.
+    """
+    if not subject.numbers.trusted:
+        raise InputError(f"--want {wants[0].quantity}={wants[0].value:g}: {NOT_TRUSTED}")
+    now = figures_of(subject.numbers.network, subject.numbers.midband)
+    told = tuple(_answered(found, subject, want, now) for want in wants)
+    if subject.engine is not None and subject.numbers.circuit is not None and not all(one.met for one in told):
+        subject.engine.bias(subject.numbers.circuit, ())
+    return told
+
+
+def _answered(found: Review, subject: Subject, want: Want, now: Figures) -> WantFacts:
+    figure = now.of(want.quantity)
+    if figure is None:
+        raise InputError(f"--want {want.quantity}={want.value:g}: {_reason(now, found)}", "ask for another figure")
+    facts = WantFacts(
+        quantity=want.quantity,
+        unit=QUANTITIES[want.quantity],
+        wanted=want.value,
+        now=figure if math.isfinite(figure) else None,
+        met=shortfall(want.quantity, figure, want.value) <= 0.0,
+        slack=_slack(want, figure),
+    )
+    if facts.met:
+        return facts
+    remedies = tuple(_remedies(found, subject, want, figure))
+    reached = any(one.reaches for one in remedies)
+    says = "" if reached else "no single change of these reaches it" if remedies else "no element here changes it"
+    return replace(facts, remedies=remedies, says=says)
+
+
+def _reason(now: Figures, found: Review) -> str:
+    if not now.stable:
+        return "the circuit is not stable, and no margin or band edge means anything"
+    if found.midband.unit not in ("V/V", "A/A"):
+        return f"a gain in {found.midband.unit} does not fall to 1"
+    return "the gain does not fall through 1 above mid-band"
+
+
+def _slack(want: Want, figure: float) -> float | None:
+    if not math.isfinite(figure):
+        return None
+    return want.value - figure if want.quantity in SMALLER_IS_BETTER else figure - want.value
+
+
+def _remedies(found: Review, subject: Subject, want: Want, now: float) -> list[Remedy]:
+    """Try the candidates; what comes after one that makes a combination needless is left out with it."""
+    numbers = subject.numbers
+    paper = paper_roots(subject)
+    remedies: list[Remedy] = []
+    missing = shortfall(want.quantity, now, want.value)
+    for trial in trials(want.quantity, found, numbers, paper.stage if not paper.halves else None):
+        outcome = attempt(trial, want.quantity, want.value, numbers)
+        if outcome is None:
+            continue
+        left = shortfall(want.quantity, outcome.figures.of(want.quantity), want.value)
+        if not outcome.reaches and missing - left < WORTH_A_ROW * missing:
+            continue
+        if trial.element is not None and trial.series is not None and outcome.factor == 1.0:
+            # the resistor alone does it
+            continue
+        remedies.append(_remedy(outcome, want, subject))
+    return sorted(remedies, key=lambda one: not one.reaches)
+
+
+def _remedy(outcome: Found, want: Want, subject: Subject) -> Remedy:
+    figures = outcome.figures
+    element, series = outcome.trial.element, outcome.trial.series
+    changes: list[WantChange] = []
+    if series is not None:
+        changes.append(WantChange(series.name, "Ω", None, series.ohm, new=True, beside=series.capacitor))
+    if element is not None:
+        first = None if outcome.first_order is None else element.value * outcome.first_order
+        changes.append(WantChange(element.name, element.unit, element.value, element.value * outcome.factor, first))
+    figure = figures.of(want.quantity)
+    simulated, says = _by_ngspice(outcome, want, subject)
+    return Remedy(
+        changes=tuple(changes),
+        reaches=outcome.reaches,
+        figure=figure if figure is not None and math.isfinite(figure) else None,
+        simulated_figure=simulated,
+        f_unity_hz=figures.f_unity_hz,
+        phase_margin_deg=figures.phase_margin_deg,
+        gain_margin_db=figures.gain_margin_db,
+        f_high_hz=figures.f_high_hz,
+        f_low_hz=figures.f_low_hz,
+        gain_db=figures.gain_db,
+        moves_bias=element is not None and element.moves_bias,
+        says=says,
+    )
+
+
+def _by_ngspice(outcome: Found, want: Want, subject: Subject) -> tuple[float | None, str]:
+    """Run the changed circuit where it can be written as cards and keeps its operating point, and say where not."""
+    numbers, engine = subject.numbers, subject.engine
+    element = outcome.trial.element
+    if numbers.circuit is None or engine is None:
+        return None, ""
+    if element is not None and (element.moves_bias or not is_card(numbers.circuit, element.name)):
+        return None, "by algebra alone, all else held"
+    values: Mapping[str, float] = {} if element is None else {element.name: element.value * outcome.factor}
+    circuit = changed_circuit(numbers.circuit, values, outcome.trial.series)
+    return _run(engine, circuit, outcome.figures, want, numbers)
+
+
+def _run(engine: Engine, circuit: Circuit, figures: Figures, want: Want, numbers: Numbers) -> tuple[float | None, str]:
+    try:
+        engine.bias(circuit, ())
+        return simulated_figure(engine.sweep, want.quantity, figures, numbers.midband), ""
+    except EngineError as error:
+        return None, f"ngspice: {error.message}"

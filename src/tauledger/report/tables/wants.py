@@ -1,0 +1,113 @@
+"""What it takes to reach a wanted figure: each change, its value, what comes of it exactly and by ngspice."""
+
+from __future__ import annotations
+
+from tauledger.record import Remedy, Review, WantFacts
+from tauledger.report.tables.grid import Grid, GridRow, columns
+from tauledger.report.tables.phase import angle
+from tauledger.report.wording import NO_NUMBER, nominal, number, part_title
+
+NAMES = {"margin": "phase margin", "gain_margin": "gain margin", "f_u": "f_u", "f_h": "f_H", "f_l": "f_L"}
+BIAS = "§"
+# The figure beside the wanted one, and that itself.
+_OTHERS = {
+    "margin": ("f_u", "margin"),
+    "gain_margin": ("f_u", "gain margin"),
+    "f_u": ("margin", "f_u"),
+    "f_h": ("gain", "f_H"),
+    "f_l": ("gain", "f_L"),
+}
+Cells = tuple[str, ...]
+
+
+def figure(want: WantFacts, value: float | None) -> str:
+    """Write a value of the wanted figure: "60.0°", "12.0 dB", "1.000 MHz"."""
+    if value is None:
+        return NO_NUMBER
+    if want.unit == "°":
+        return angle(value)
+    return f"{value:.1f} dB" if want.unit == "dB" else number(value, want.unit, 4)
+
+
+def wanted(want: WantFacts) -> str:
+    """Say what is wanted, as the reader gave it: "phase margin 60°"."""
+    if want.unit == "Hz":
+        return f"{NAMES[want.quantity]} {nominal(want.wanted, 'Hz')}"
+    return f"{NAMES[want.quantity]} {want.wanted:.4g}{'°' if want.unit == '°' else ' dB'}"
+
+
+def verdict(want: WantFacts) -> str:
+    """Say in a line whether the figure is met, and with how much to spare, or by how much it is missed."""
+    if want.now is None:
+        return f"{wanted(want)}: met, the response has no end there"
+    now = f"{wanted(want)}: now {figure(want, want.now)}"
+    if want.met:
+        return f"{now}, met with {figure(want, want.slack)} to spare"
+    return f"{now}, missed by {figure(want, abs(want.slack or 0.0))}{f'; {want.says}' if want.says else ''}"
+
+
+def heads(want: WantFacts) -> Cells:
+    """Give the heads of the columns behind the change."""
+    return ("value", "by slope", *_OTHERS[want.quantity], "ngspice")
+
+
+def cells(want: WantFacts, one: Remedy) -> Cells:
+    """Give the cells of one remedy: the change, its value, what the slope alone says, what comes of it."""
+    value = next((change for change in one.changes if not change.new), None)
+    beside = {
+        "f_u": number(one.f_unity_hz, "Hz", 4),
+        "margin": angle(one.phase_margin_deg),
+        "gain": f"{one.gain_db:.2f} dB",
+    }
+    others = (beside[head] for head in _OTHERS[want.quantity][:1])
+    by_slope = "" if value is None or value.first_order is None else number(value.first_order, value.unit, 4)
+    return (
+        change_text(one),
+        "" if value is None else number(value.value, value.unit, 4),
+        by_slope,
+        *others,
+        figure(want, one.figure),
+        figure(want, one.simulated_figure),
+    )
+
+
+def change_text(one: Remedy) -> str:
+    """Name a change: "824 Ω (1/gm) in series with CC, and CC"; marks one that is not enough or moves the bias."""
+    told = [
+        f"{number(change.value, change.unit, 3)} (1/gm) in series with {change.beside}"
+        if change.new
+        else f"{part_title(change.name, change.name.partition('.')[0])}{BIAS if one.moves_bias else ''}"
+        for change in one.changes
+    ]
+    return ", and ".join(told) + ("" if one.reaches else ": not enough")
+
+
+def notes(want: WantFacts) -> str:
+    """Say how the values were found, and what the mark means."""
+    told = [
+        "value: computed again until it does, operating point held; ngspice: the changed circuit run",
+        *dict.fromkeys(
+            f"{BIAS} moves the operating point; {one.says}" if one.moves_bias else one.says
+            for one in want.remedies
+            if one.says
+        ),
+    ]
+    return "; ".join(told)
+
+
+def what_it_takes(review: Review) -> tuple[Grid, ...]:
+    """Give one table per wanted figure that is missed and for which there is something to try."""
+    return tuple(
+        Grid(
+            f"What {wanted(want)} takes",
+            columns("change", *heads(want)),
+            tuple(GridRow(cells(want, one), part=_part(one)) for one in want.remedies),
+            f"{notes(want)}.",
+        )
+        for want in review.wants
+        if want.remedies
+    )
+
+
+def _part(one: Remedy) -> str:
+    return next((change.name for change in one.changes if not change.new), "")
