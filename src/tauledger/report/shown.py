@@ -32,14 +32,17 @@ class Shown(Struct, frozen=True):
     curves: tuple[ShownCurve, ...]
 
 
-def shown(review: Review) -> Shown | None:
-    """Give what is shown; None where there are no curves. The exact response only where nothing was simulated."""
+def shown(review: Review, *, exact: bool = False) -> Shown | None:
+    """Give what is shown; None where there are no curves.
+
+    exact: the exact response too; else only where nothing was simulated, for the two lie on each other.
+    """
     curves = review.curves
     if curves is None or len(curves.frequency_hz) < 2:
         return None
     first, last = _range(review, curves)
     at = [k for k, f in enumerate(curves.frequency_hz) if first <= f <= last]
-    exact_db = curves.exact_db if curves.simulated_db is None else None
+    exact_db = curves.exact_db if exact or curves.simulated_db is None else None
     rows = (
         ("hand", "by hand, a pole for each node", curves.hand_db, curves.hand_deg),
         ("exact", "exact", exact_db, curves.exact_deg),

@@ -169,7 +169,7 @@ def _unity_gain(upper: Axes, lower: Axes, review: Review) -> None:
 
 
 def _roots(axes: Axes, roots: tuple[Root, ...], first: float, last: float, *, narrow: bool) -> None:
-    """Mark poles and zeros on two lines at the foot of the magnitude; where marks are close, every other name is higher.
+    """Mark poles and zeros on two lines at the foot of the magnitude, every other name higher where close.
 
     On a small screen there is no room for two names: of marks close to each other the first has its name.
     """
