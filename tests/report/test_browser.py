@@ -10,6 +10,7 @@ from typing import Any
 import pytest
 from playwright.sync_api import Browser, Page, sync_playwright
 
+from report.cursors import WITH_FACTORS
 from report.literal import ECHO_PREAMP
 from tauledger.report.charts.style import PALETTE
 from tauledger.report.html import to_html
@@ -122,13 +123,59 @@ def test_the_page_in_a_browser(browser: Browser, tmp_path: Path) -> None:
     assert complaints == []
 
 
+def test_the_frequency_cursor_follows_mouse_keys_and_finger(browser: Browser, tmp_path: Path) -> None:
+    file = tmp_path / "review.html"
+    file.write_bytes(to_html(WITH_FACTORS))
+    context = browser.new_context(viewport={"width": 1200, "height": 900}, has_touch=True)
+    page = context.new_page()
+    complaints: list[Any] = []
+    page.on("console", lambda message: complaints.append(message.text))
+    page.on("pageerror", lambda error: complaints.append(str(error)))
+    page.goto(file.as_uri())
+    output, slider = page.locator("output"), page.locator("#cursor-at")
+    line = page.locator("#bode svg.wide .cursor-line")
+    factor = page.locator(".cursor tr[data-part='Q1.c_mu'] [data-at]")
+    chart = page.locator("#bode svg.wide")
+    chart.scroll_into_view_if_needed()
+    at_edge = output.inner_text()
+    assert at_edge == slider.get_attribute("aria-valuetext")
+    before = line.get_attribute("x1")
+
+    box = chart.bounding_box()
+    assert box is not None
+    chart.hover(position={"x": 0.6 * box["width"], "y": 0.3 * box["height"]})
+    assert output.inner_text() != at_edge
+    assert line.get_attribute("x1") != before
+    assert factor.nth(0).inner_text() == "180"
+
+    slider.focus()
+    page.keyboard.press("End")
+    assert float(slider.input_value()) == float(slider.get_attribute("max") or 0)
+    assert slider.get_attribute("aria-valuetext") == output.inner_text()
+    page.keyboard.press("Home")
+    assert factor.nth(0).inner_text() == "–", "below mid-band there is no factor"
+
+    chart.tap(position={"x": 0.85 * box["width"], "y": 0.3 * box["height"]})
+    assert factor.nth(0).inner_text() not in ("–", "180")
+    assert complaints == []
+
+    for width in (360, 768):
+        page.set_viewport_size({"width": width, "height": 900})
+        assert page.evaluate(TOO_WIDE) == []
+        assert page.locator(".cursor").is_visible()
+    page.emulate_media(media="print")
+    assert page.locator(".cursor").is_hidden()
+    context.close()
+
+
 def test_everything_is_read_without_script(browser: Browser, tmp_path: Path) -> None:
     file = tmp_path / "review.html"
-    file.write_bytes(to_html(ECHO_PREAMP))
+    file.write_bytes(to_html(WITH_FACTORS))
     context = browser.new_context(java_script_enabled=False, viewport={"width": 1200, "height": 900})
     page = context.new_page()
     page.goto(file.as_uri())
     assert page.locator("svg.chart").first.is_visible()
+    assert page.locator(".cursor").is_hidden()
     page.locator("summary").first.click()
     assert page.locator("details[open] .working").first.is_visible()
     context.close()
