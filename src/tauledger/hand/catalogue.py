@@ -67,6 +67,59 @@ LOOPS: tuple[Entry, ...] = (
     ),
 )
 
+GLOBAL: tuple[Entry, ...] = (
+    Entry(
+        "global feedback",
+        "return ratio",
+        "T0 = gm·R_C·K1·K2·…, R_C and every gain K round to the base with that gm at zero",
+        "one loop; opened at its last inverting transistor, whose own r_e and r_o count in T",
+        f"Bode, Network Analysis and Feedback Amplifier Design, 1945; {GRAY}, sec. 8.8 (from memory)",
+    ),
+    Entry(
+        "global feedback",
+        "ideal gain, shunt feedback",
+        "A∞ = −R_F for a current, −R_F/R_S for a voltage behind R_S",
+        "one resistor from the output to the base or gate of the first transistor; T0 large",
+        f"{GRAY}, sec. 8.5 (from memory)",
+    ),
+    Entry(
+        "global feedback",
+        "ideal gain, series feedback",
+        "A∞ = 1 + R_F/R_E",
+        "R_F from the output to the emitter or source of the first transistor, R_E from there to ground; T0 large",
+        f"{GRAY}, sec. 8.4 (from memory)",
+    ),
+    Entry(
+        "global feedback",
+        "asymptotic gain",
+        "A = A∞·T/(1 + T) + A0/(1 + T)",
+        "always, T, A∞ (T → ∞) and A0 (T = 0) of one source; paper leaves A0 out",
+        "Rosenstark, IEEE Trans. Education E-17(4), 1974 (from memory)",
+    ),
+    Entry(
+        "global feedback",
+        "closed-loop band edge",
+        "f_H = f_T·(1 + T0), f_T the edge of T; β·GBW where T0 is large",
+        "T has one pole up to where |T| = 1, and nothing outside of the loop falls before; source and load are in T",
+        "common practice",
+    ),
+    Entry(
+        "global feedback",
+        "noise gain",
+        "f_H = GBW/(1/β), 1/β = output of the amplifier over what of it comes back to its inputs",
+        "an operational amplifier with one pole; 1/β flat up to f_H",
+        "common practice",
+    ),
+    Entry(
+        "global feedback",
+        "double injection",
+        "1/(1 + T) = v1 + i1 = 1/(1 + T_v) + 1/(1 + T_i)",
+        "any wire of the closed loop; equals the return ratio where nothing passes the wire backwards but by a "
+        "reciprocal way, and at the wire of a controlled source",
+        "Middlebrook, Int. J. Electronics 38(4), 1975 (from memory)",
+    ),
+)
+
 CAPACITANCES: tuple[Entry, ...] = (
     Entry(
         "Miller's split",

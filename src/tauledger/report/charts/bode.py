@@ -112,6 +112,7 @@ def _measured(upper: Axes, lower: Axes, review: Review, first: float, last: floa
 
 
 def degree_ticks(axes: Axes) -> None:
+    """Put the ticks of a phase at round angles, six of them at most."""
     from matplotlib.ticker import MultipleLocator
 
     low, high = axes.get_ylim()
@@ -120,6 +121,7 @@ def degree_ticks(axes: Axes) -> None:
 
 
 def hertz_ticks(axes: Axes, *, most: int) -> None:
+    """Put the ticks of a frequency at decades, `most` of them at most, written with their unit."""
     from matplotlib.ticker import FuncFormatter, LogLocator, NullLocator
 
     first, last = axes.get_xlim()
