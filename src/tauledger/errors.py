@@ -2,7 +2,8 @@
 
 TauledgerError
 ├── InputError          exit 2   an option, a file or a request cannot be used
-│   └── NetlistError    exit 2   the netlist cannot be used: one or more diagnostics, each with its place
+│   ├── NetlistError    exit 2   the netlist cannot be used: one or more diagnostics, each with its place
+│   └── ElementError    exit 2   one element cannot be linearised at its operating point
 ├── EngineError         exit 3   ngspice answered, but not with a usable result
 │   ├── EngineMissing   exit 3   the library is not there or is not ngspice
 │   └── EngineTimeout   exit 3   the deadline passed and the worker was ended
@@ -85,6 +86,18 @@ class NetlistError(InputError):
 
     def __str__(self) -> str:
         return "\n".join(str(diagnostic) for diagnostic in self.diagnostics)
+
+
+class ElementError(InputError):
+    """One element cannot be linearised at its operating point; where the netlist is known it becomes a NetlistError.
+
+    element: its name in the flat circuit. message, hint: as of InputError.
+    """
+
+    def __init__(self, element: str, message: str, hint: str = "") -> None:
+        super().__init__(message, hint)
+        self.args = (element, message, hint)
+        self.element = element
 
 
 class EngineError(TauledgerError):

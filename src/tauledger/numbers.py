@@ -15,10 +15,11 @@ from numpy.typing import NDArray
 
 from tauledger.circuit import Change, Circuit
 from tauledger.devices.catalogue import linearise
-from tauledger.devices.family import Device
+from tauledger.devices.family import Device, Linearised
 from tauledger.engine.client import Engine
 from tauledger.engine.grid import decades, evenly
-from tauledger.netlist import Netlist, ac_range, elaborate
+from tauledger.errors import ElementError
+from tauledger.netlist import Netlist, ac_range, at_element, elaborate
 from tauledger.network.agreement import Agreement, agreement
 from tauledger.network.assemble import Network
 from tauledger.network.bands import Bands, classify
@@ -28,6 +29,7 @@ from tauledger.network.poles import PoleZeroMap, find_poles
 from tauledger.network.recompute import EdgeFrequencies, edge_frequencies, scaled
 from tauledger.network.solve import Complex, response
 from tauledger.network.transformers import drawn_out
+from tauledger.network.unity import is_ratio
 from tauledger.simulated import Simulated, simulate
 from tauledger.solution import Bias
 
@@ -83,7 +85,7 @@ def solve(
     """
     circuit = _per_unit(elaborate(netlist, change, drive=drive, output=output))
     bias = engine.operating_point(circuit)
-    linearised = linearise(circuit, bias)
+    linearised = linearised_at(netlist, circuit, bias)
     if len(circuit.instances) > 1:
         from tauledger.network.folding import fold_instances
 
@@ -100,11 +102,26 @@ def solve(
     return replace(numbers, circuit=circuit, bias=bias, simulated=simulated, agreement=agreed)
 
 
+def linearised_at(netlist: Netlist, circuit: Circuit, bias: Bias) -> Linearised:
+    """Linearise a circuit at its operating point.
+
+    Raises NetlistError at the card of an element that has no small-signal network there.
+    """
+    try:
+        return linearise(circuit, bias)
+    except ElementError as error:
+        raise at_element(netlist, circuit, error) from error
+
+
 def solve_network(network: Network, *, devices: tuple[Device, ...] = (), midband_hz: float | None = None) -> Numbers:
     """Give the exact numbers of a network alone; nothing is simulated.
 
-    Raises NetworkError where the network has no unique solution.
+    Raises NetworkError where the network has no unique solution, InputError where nothing but a line holds a node.
     """
+    if network.lines:
+        from tauledger.network.lines import require_held_ends
+
+        require_held_ends(network)
     network = drawn_out(network)
     midband = find_midband(network, at_hz=midband_hz)
     return Numbers(
@@ -135,7 +152,7 @@ def recompute(numbers: Numbers, scale: Mapping[str, float]) -> EdgeFrequencies:
 
 
 def _sweep_grid(numbers: Numbers, asked: tuple[float, float] | None) -> NDArray[np.float64]:
-    """Lay out the sweep: a decade beyond all poles, two beyond the band edges, and the netlist's own range."""
+    """Lay out the sweep: a decade beyond all poles, two beyond the band edges, unity gain, the netlist's own range."""
     roots: Complex = np.array([pole.s for pole in numbers.poles.poles], dtype=complex)
     if numbers.network.lines:
         from tauledger.network.lines import lumped
@@ -150,7 +167,9 @@ def _sweep_grid(numbers: Numbers, asked: tuple[float, float] | None) -> NDArray[
         start = min(start, low.hz / 100.0)
     if high is not None and high.hz is not None:
         start = min(start, high.hz / 1e4)
-        stop = max(stop, high.hz * 100.0)
+        # one pole alone reaches a gain of 1 at the gain-bandwidth product
+        falls_to_one = 2.0 * abs(numbers.midband.gain) * high.hz if is_ratio(numbers.network) else 0.0
+        stop = max(stop, high.hz * 100.0, min(falls_to_one, HIGHEST_HZ))
     if asked is not None:
         start, stop = min(start, asked[0]), max(stop, asked[1])
     return decades(start, max(stop, 10.0 * start), POINTS_PER_DECADE)

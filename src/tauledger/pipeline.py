@@ -18,7 +18,6 @@ from tauledger.asked import NOTHING_ASKED, Asked
 from tauledger.circuit import GROUND, NO_CHANGE, Change, Port, joined
 from tauledger.compose.review import compose
 from tauledger.compose.setting import unit_of
-from tauledger.devices.catalogue import linearise
 from tauledger.devices.family import Device
 from tauledger.devices.parts import Part
 from tauledger.engine.client import Engine, start_engine
@@ -26,7 +25,7 @@ from tauledger.errors import InputError, NetlistError
 from tauledger.explain import Explanation, explain
 from tauledger.netlist import elaborate, read
 from tauledger.network.assemble import Network
-from tauledger.numbers import Numbers, recompute, solve, solve_network
+from tauledger.numbers import Numbers, linearised_at, recompute, solve, solve_network
 from tauledger.record import DevicesTable, Review
 
 if TYPE_CHECKING:
@@ -149,7 +148,7 @@ def devices(
             raise
         circuit = elaborate(netlist, change, purpose="reading")
     bias = engine.operating_point(circuit)
-    return devices_table(netlist, circuit, bias, linearise(circuit, bias))
+    return devices_table(netlist, circuit, bias, linearised_at(netlist, circuit, bias))
 
 
 def review_network(

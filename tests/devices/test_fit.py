@@ -10,7 +10,7 @@ from hypothesis import strategies as st
 from tauledger.devices.fit import Fit, fit, frequencies, states
 from tauledger.devices.parts import Part
 from tauledger.devices.reduced import hybrid_pi, quasi_static, with_remainder
-from tauledger.errors import EngineError
+from tauledger.errors import ElementError
 from tauledger.solution import Samples
 
 few = settings(max_examples=20, deadline=None, derandomize=True)
@@ -162,7 +162,7 @@ def test_a_delay_is_refused_with_the_instance_s_name() -> None:
     samples = sampled(g, c)
     late = samples.admittance.copy()
     late[:, 0] *= np.exp(-2j * np.pi * samples.frequency_hz * 5e-12)[:, None]
-    with pytest.raises(EngineError, match="Q1 cannot be rebuilt"):
+    with pytest.raises(ElementError, match="Q1 could not be fitted within 1e-08"):
         fit(
             Samples(
                 samples.element,

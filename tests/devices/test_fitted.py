@@ -8,9 +8,11 @@ import numpy as np
 import pytest
 
 from tauledger.circuit import NO_CHANGE, Change
+from tauledger.cli import main
+from tauledger.devices import fit
 from tauledger.devices.family import Device
 from tauledger.engine.client import Engine
-from tauledger.errors import NetlistError
+from tauledger.errors import ExitCode, NetlistError
 from tauledger.netlist import elaborate, read
 from tauledger.network.solve import response
 from tauledger.numbers import Numbers, solve
@@ -210,6 +212,37 @@ def test_non_quasi_static_ac_is_refused_at_its_model(tmp_path: Path) -> None:
     path.write_text(CASES["bsim4 saturation"].replace("rgatemod=3", "acnqsmod=1"))
     with pytest.raises(NetlistError, match=r"stage\.cir:\d+:\d+: .*ACNQSMOD"):
         elaborate(read(path), NO_CHANGE)
+
+
+def test_a_fit_that_fails_its_check_is_told_at_the_card(
+    tmp_path: Path, engine: Engine, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    monkeypatch.setattr(fit, "ACCEPTED", 0.0)
+    with pytest.raises(NetlistError) as caught:
+        solved(CASES["vbic active"], tmp_path, engine)
+    (told,) = caught.value.diagnostics
+    assert (told.line, told.column, told.width, told.text) == (6, 1, 2, "Q1 d g e b m")
+    assert "the small-signal behaviour of Q1 could not be fitted" in told.message
+    assert caught.value.exit_code == ExitCode.UNUSABLE_INPUT
+
+
+def test_a_formula_without_derivative_is_told_at_its_card_and_nothing_is_written(
+    tmp_path: Path, capsys: pytest.CaptureFixture[str]
+) -> None:
+    text = stage("X1 d g part", f"npn{VBIC}", 3, 0.0).replace(
+        ".end", ".subckt part d g\n* at v(g) = 0 the slope is infinite\nB1 d 0 i = 1m*sqrt(v(g))\n.ends\n.end"
+    )
+    path, report = tmp_path / "stage.cir", tmp_path / "stage.html"
+    path.write_text(text)
+    with pytest.raises(SystemExit) as left:
+        main(["review", str(path), "--report", str(report)])
+    assert left.value.code == ExitCode.UNUSABLE_INPUT
+    said = capsys.readouterr()
+    assert "stage.cir:15:1: the formula of X1.B1 has no derivative at its operating point" in said.err
+    assert "  B1 d 0 i = 1m*sqrt(v(g))\n  ^^\n" in said.err
+    assert "in X1 (" in said.err
+    assert said.out == ""
+    assert not report.exists()
 
 
 def test_worst_agreement_per_family_is_what_the_developers_page_keeps(

@@ -16,7 +16,7 @@ from itertools import pairwise
 from msgspec import Struct
 
 from tauledger.circuit import Apply, Circuit, Current, Formula, Number, Variable, Voltage
-from tauledger.errors import InputError
+from tauledger.errors import ElementError
 from tauledger.solution import Bias
 
 Control = Voltage | Current
@@ -36,14 +36,15 @@ class NoDerivative(Exception):
 def at_bias(formula: Formula, circuit: Circuit, bias: Bias, owner: str) -> Slope:
     """Give value and derivatives of a formula at the operating point.
 
-    Raises InputError where it has no finite derivative there.
+    Raises ElementError where it has no finite derivative there.
     """
     try:
         found = _slope(formula, circuit, bias)
         if not all(map(math.isfinite, (found.value, *found.by.values()))):
             raise NoDerivative("a value is not finite")
     except (NoDerivative, OverflowError, ZeroDivisionError, ValueError) as reason:
-        raise InputError(
+        raise ElementError(
+            owner,
             f"the formula of {owner} has no derivative at its operating point ({reason})",
             "keep it away from such a point, or write the formula otherwise",
         ) from reason

@@ -22,7 +22,7 @@ import numpy as np
 from msgspec import Struct
 from numpy.typing import NDArray
 
-from tauledger.errors import EngineError
+from tauledger.errors import ElementError
 from tauledger.solution import Samples
 
 Real = NDArray[np.float64]
@@ -80,7 +80,7 @@ def frequencies() -> tuple[float, ...]:
 def fit(samples: Samples) -> Fit:
     """Fit G + s·C to what one instance answered, and check it at the frequencies that a second fit leaves out.
 
-    Raises EngineError where no such matrices describe it: delays, noise, or lines inside.
+    Raises ElementError where no such matrices describe it: delays, noise, or lines inside.
     """
     worst = np.inf
     for floor in AT_REST:
@@ -88,10 +88,11 @@ def fit(samples: Samples) -> Fit:
         if found.error <= ACCEPTED:
             return found
         worst = min(worst, found.error)
-    raise EngineError(
-        f"{samples.element} cannot be rebuilt: no conductances and capacitances describe what ngspice says of it "
-        f"(error {worst:.1e})",
-        "a delay, a line or a frequency-dependent option of its model may be the reason",
+    raise ElementError(
+        samples.element,
+        f"the small-signal behaviour of {samples.element} could not be fitted within {ACCEPTED:.0e} (error "
+        f"{worst:.1e}): no conductances and capacitances describe what ngspice says of it",
+        "leave out what in its model is a delay or depends on the frequency, or use a simpler level",
     )
 
 

@@ -64,7 +64,7 @@ def isolated(inner: tuple[str, ...]) -> Callable[[Circuit, Element, Bias], Isola
 def bipolar(circuit: Circuit, element: Element, bias: Bias) -> Device:
     """Give a fitted bipolar transistor: hybrid-π between its terminals, and the remainder.
 
-    Raises EngineError where no matrices describe it.
+    Raises ElementError where no matrices describe it.
     """
     from tauledger.devices.fit import fit
     from tauledger.devices.reduced import hybrid_pi, placed, with_remainder
@@ -115,7 +115,7 @@ def field_effect(circuit: Circuit, element: Element, bias: Bias) -> Device:
     """Give a fitted field-effect transistor: channel and charges between its terminals, and the remainder.
 
     Drain and source are exchanged where the gate's current flows the other way.
-    Raises EngineError where no matrices describe it.
+    Raises ElementError where no matrices describe it.
     """
     from tauledger.devices.fit import fit
     from tauledger.devices.reduced import placed, quasi_static, with_remainder

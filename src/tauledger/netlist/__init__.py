@@ -15,7 +15,7 @@ writer, hierarchy, origin, settings, added    the flat deck, the tree, where a v
 Messages are made in diagnostics. Only reader touches files; no text of a netlist leaves this room except names.
 """
 
-from tauledger.netlist.elaborate import elaborate, instance_context
+from tauledger.netlist.elaborate import at_element, elaborate, instance_context
 from tauledger.netlist.hints import Hints, ac_range, hints, read_past, read_past_places
 from tauledger.netlist.netlist import Netlist, place
 from tauledger.netlist.reader import read
@@ -24,6 +24,7 @@ __all__ = [
     "Hints",
     "Netlist",
     "ac_range",
+    "at_element",
     "elaborate",
     "hints",
     "instance_context",

@@ -12,7 +12,7 @@ from msgspec import Struct
 from msgspec.structs import replace
 
 from tauledger.circuit import ADDED, GROUND, NO_CHANGE, Change, Circuit, Element, Port, ReadingNote, fold
-from tauledger.errors import Diagnostic, InputError, NetlistError
+from tauledger.errors import Diagnostic, ElementError, InputError, NetlistError
 from tauledger.netlist.conditions import counts, define_all
 from tauledger.netlist.diagnostics import Site, gather, nearest, visible
 from tauledger.netlist.draft import Draft, Row, check_all_used, check_finite, draft_for, finished, inductors, passives
@@ -156,6 +156,14 @@ def instance_context(netlist: Netlist, circuit: Circuit, path: int) -> tuple[str
         lines.append(f"in {instance.name} ({at}), subcircuit {instance.subcircuit} ({of})")
         path = instance.parent
     return tuple(lines)
+
+
+def at_element(netlist: Netlist, circuit: Circuit, error: ElementError) -> NetlistError:
+    """Give the error of one element at its card, with the instances around it."""
+    element = next(one for one in circuit.elements if fold(one.name) == fold(error.element))
+    card = netlist.cards[element.card]
+    site = Site(netlist.files, card, instance_context(netlist, circuit, element.path))
+    return site.fault(0, error.message, error.hint, wide=len(card.text.split(maxsplit=1)[0]))
 
 
 def _global_parameters(netlist: Netlist, change: Change, scope: Scope, faults: list[Diagnostic]) -> None:
