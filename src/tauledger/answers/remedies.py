@@ -7,7 +7,7 @@ does; one that cannot do it within a factor of 100 is said to be none.
 from __future__ import annotations
 
 import math
-from collections.abc import Callable, Iterator, Mapping
+from collections.abc import Callable, Iterator, Mapping, Sequence
 
 from msgspec import Struct
 
@@ -16,7 +16,8 @@ from tauledger.answers.figures import Figures, figures_of
 from tauledger.errors import NetworkError
 from tauledger.hand.compensated import CompensatedStage
 from tauledger.network.altered import SeriesResistor, altered
-from tauledger.network.targets import UnityMove, unity_moves
+from tauledger.network.first_order import rerun
+from tauledger.network.targets import UnityMove, follow_unity, unity_moves
 from tauledger.network.unity import find_unity
 from tauledger.numbers import Numbers
 from tauledger.record import Help, Review
@@ -26,15 +27,29 @@ STEP = math.log(1.25)
 FARTHEST = math.log(100.0)
 SLOPE_STEP = 1e-3
 REACHED = 1e-9
+# How far a followed figure and one that is searched for may differ, to be called the same.
+PROVED = 1e-6
+# Twins of a balanced circuit, as close as its halves are asked to be.
+SAME = 1e-6
 ROUNDS = 60
 MOST_FREE = 3
+# Where a figure cannot be reached, the change that brings this much of what can be had.
+MOST_OF_IT = 0.95
 
 
 class Trial(Struct, frozen=True):
-    """One candidate: the element whose value is sought, None where there is none, and a resistor that is put in."""
+    """One candidate: the element whose value is sought, None where there is none, and a resistor that is put in.
+
+    twin: in a balanced circuit the same element of the other half, which is changed with it.
+    """
 
     element: Element | None
     series: SeriesResistor | None = None
+    twin: Element | None = None
+
+    def factors(self, factor: float) -> Mapping[str, float]:
+        """Give the factors on the parts' values that are this factor on the element's."""
+        return {one.name: factor**one.sign for one in (self.element, self.twin) if one is not None}
 
 
 class Found(Struct, frozen=True):
@@ -70,62 +85,120 @@ def trials(quantity: str, found: Review, numbers: Numbers, stage: CompensatedSta
     """
     known = {one.name: one for one in elements(numbers)}
     effect = _effects(quantity, found, numbers)
-    gm = max(
-        (one for one in known.values() if one.unit == "S"), key=lambda one: abs(effect.get(one.name, 0.0)), default=None
-    )
+    ranked = sorted((one for one in known.values() if effect.get(one.name)), key=lambda one: -abs(effect[one.name]))
+    twin = _twins(found, ranked)
+    leading = [one for one in ranked if one.name not in twin or ranked.index(one) < ranked.index(twin[one.name])]
     at_stage = list(_of_stage(stage, known, numbers)) if stage is not None and quantity.endswith("margin") else []
     if at_stage:
         yield from at_stage
     else:
-        free = [one for one in known.values() if one.free and effect.get(one.name)]
-        free.sort(key=lambda one: -abs(effect[one.name]))
-        yield from (Trial(one) for one in free[:MOST_FREE])
-    if gm is not None and effect.get(gm.name):
-        yield Trial(gm)
+        free = [one for one in leading if one.free][:MOST_FREE]
+        yield from (Trial(one, twin=twin.get(one.name)) for one in free)
+    yield from (Trial(one, twin=twin.get(one.name)) for one in [one for one in leading if one.unit == "S"][:1])
+
+
+def _twins(found: Review, ranked: Sequence[Element]) -> Mapping[str, Element]:
+    """Give for every element of a balanced circuit the same one of the other half, by name."""
+    image = {member: row.image for row in found.nodes if row.image for member in row.members}
+    row_of = {member: row.name for row in found.nodes for member in row.members}
+
+    def place(one: Element) -> tuple[str, ...]:
+        return tuple(sorted(row_of.get(node, node) for node in one.nodes))
+
+    twins = {}
+    for one in ranked:
+        there = tuple(sorted(image.get(node, row_of.get(node, node)) for node in one.nodes))
+        for other in ranked:
+            same = math.isclose(one.value, other.value, rel_tol=SAME) and one.unit == other.unit
+            if same and other.name != one.name and there != place(one) and place(other) == there:
+                twins[one.name] = other
+    return twins
 
 
 def attempt(trial: Trial, quantity: str, wanted: float, numbers: Numbers) -> Found | None:
     """Solve for the value that reaches the wanted figure; None where the element has no effect or none can be computed.
 
-    Where it cannot be reached, the best value within a factor of 100 in the direction that helps.
+    Where it cannot be reached, the best value within a factor of 100 in the direction that helps. The figure is
+    followed from where it is; the value found is proved by a search of the whole response, and where that does not
+    agree the value is sought by such searches alone.
     """
-    computed: dict[float, Figures | None] = {}
+    if trial.element is None:
+        figures = _figures(trial, 1.0, numbers)
+        if figures is None:
+            return None
+        return Found(trial, 1.0, None, shortfall(quantity, figures.of(quantity), wanted) <= 0.0, figures)
+    followed = _follow(trial, quantity, numbers)
+    if followed is not None:
+        found = _solved(trial, quantity, wanted, numbers, followed)
+        if found is not None:
+            return found
 
-    def at(u: float) -> Figures | None:
-        if u not in computed:
-            computed[u] = _figures(trial, math.exp(u), numbers)
-        return computed[u]
+    def searched(factor: float) -> float | None:
+        figures = _figures(trial, factor, numbers)
+        return None if figures is None else figures.of(quantity)
 
+    return _solved(trial, quantity, wanted, numbers, searched)
+
+
+def _solved(
+    trial: Trial, quantity: str, wanted: float, numbers: Numbers, figure: Callable[[float], float | None]
+) -> Found | None:
     def miss(u: float) -> float:
-        figures = at(u)
-        return math.inf if figures is None else shortfall(quantity, figures.of(quantity), wanted)
+        return shortfall(quantity, figure(math.exp(u)), wanted)
 
     start = miss(0.0)
-    if trial.element is None or start <= 0.0:
-        figures = at(0.0)
-        return None if figures is None else Found(trial, 1.0, None, start <= 0.0, figures)
-    slope = (miss(SLOPE_STEP) - miss(-SLOPE_STEP)) / (2.0 * SLOPE_STEP)
-    if not math.isfinite(slope) or not slope:
+    slope = 0.0 if start <= 0.0 else (miss(SLOPE_STEP) - miss(-SLOPE_STEP)) / (2.0 * SLOPE_STEP)
+    u, first = 0.0, None
+    if start > 0.0:
+        if not math.isfinite(slope) or not slope:
+            return None
+        straight = -start / slope
+        first = math.exp(straight) if abs(straight) <= FARTHEST else None
+        u = _walk(miss, math.copysign(1.0, straight), start)
+    figures = _figures(trial, math.exp(u), numbers)
+    if figures is None:
         return None
-    straight = -start / slope
-    u, reaches = _walk(miss, math.copysign(1.0, straight), start)
-    best = at(u)
-    if best is None:
+    left = shortfall(quantity, figures.of(quantity), wanted)
+    near = PROVED * (wanted if quantity.endswith("margin") else 1.0)
+    if miss(u) <= near < left:
+        # followed to a figure that a search of the whole response does not find
         return None
-    return Found(trial, math.exp(u), math.exp(straight) if abs(straight) <= FARTHEST else None, reaches, best)
+    return Found(trial, math.exp(u), first, left <= near, figures)
 
 
-def _walk(miss: Callable[[float], float], direction: float, start: float) -> tuple[float, bool]:
-    """Go from 0 in steps until the figure is reached, then narrow; else give the best place."""
-    before, best, u = start, (start, 0.0), 0.0
-    while abs(u) < FARTHEST:
+def _follow(trial: Trial, quantity: str, numbers: Numbers) -> Callable[[float], float | None] | None:
+    """Give a quick way to the figure over the factor, None for one that has to be searched for."""
+    unity = find_unity(numbers.network, numbers.midband, numbers.edges)
+
+    def by_unity(factor: float) -> float | None:
+        assert unity is not None
+        changed = altered(numbers.network, trial.factors(factor), trial.series)
+        again = follow_unity(changed, numbers.midband, unity)
+        if again is None:
+            return None
+        return again.hz if quantity == "f_u" else again.phase_margin_deg
+
+    def by_edge(factor: float) -> float | None:
+        again = rerun(numbers.network, numbers.midband, numbers.edges, trial.factors(factor))
+        return again.f_high if quantity == "f_h" else again.f_low
+
+    if quantity in ("margin", "f_u"):
+        return None if unity is None else by_unity
+    return by_edge if quantity in ("f_h", "f_l") and trial.series is None else None
+
+
+def _walk(miss: Callable[[float], float], direction: float, start: float) -> float:
+    """Go from 0 in steps until the figure is reached, then narrow; else stop where little more is to be had."""
+    trail = [(start, 0.0)]
+    while abs(trail[-1][1]) < FARTHEST:
+        before, u = trail[-1]
         after = u + direction * STEP
         here = miss(after)
         if here <= 0.0:
-            return _narrow(miss, (u, before), (after, here)), True
-        best = min(best, (here, after))
-        u, before = after, here
-    return best[1], False
+            return _narrow(miss, (u, before), (after, here))
+        trail.append((here, after))
+    best = min(trail)[0]
+    return next(u for here, u in trail if start - here >= MOST_OF_IT * (start - best))
 
 
 def _narrow(miss: Callable[[float], float], out: tuple[float, float], reached: tuple[float, float]) -> float:
@@ -152,10 +225,8 @@ def _narrow(miss: Callable[[float], float], out: tuple[float, float], reached: t
 
 
 def _figures(trial: Trial, factor: float, numbers: Numbers) -> Figures | None:
-    one = trial.element
-    factors = {} if one is None else {one.name: factor**one.sign}
     try:
-        return figures_of(altered(numbers.network, factors, trial.series), numbers.midband)
+        return figures_of(altered(numbers.network, trial.factors(factor), trial.series), numbers.midband)
     except NetworkError:
         # far from its value an element can leave a network that has no solution: no candidate there
         return None

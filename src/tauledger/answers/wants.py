@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping
 
 from msgspec.structs import replace
 
@@ -100,7 +99,9 @@ def _remedy(outcome: Found, want: Want, subject: Subject) -> Remedy:
         changes.append(WantChange(series.name, "Ω", None, series.ohm, new=True, beside=series.capacitor))
     if element is not None:
         first = None if outcome.first_order is None else element.value * outcome.first_order
-        changes.append(WantChange(element.name, element.unit, element.value, element.value * outcome.factor, first))
+        for one in (element, outcome.trial.twin):
+            if one is not None:
+                changes.append(WantChange(one.name, one.unit, one.value, one.value * outcome.factor, first))
     figure = figures.of(want.quantity)
     simulated, says = _by_ngspice(outcome, want, subject)
     return Remedy(
@@ -125,9 +126,10 @@ def _by_ngspice(outcome: Found, want: Want, subject: Subject) -> tuple[float | N
     element = outcome.trial.element
     if numbers.circuit is None or engine is None:
         return None, ""
-    if element is not None and (element.moves_bias or not is_card(numbers.circuit, element.name)):
+    changed = [one for one in (element, outcome.trial.twin) if one is not None]
+    if any(one.moves_bias or not is_card(numbers.circuit, one.name) for one in changed):
         return None, "by algebra alone, all else held"
-    values: Mapping[str, float] = {} if element is None else {element.name: element.value * outcome.factor}
+    values = {one.name: one.value * outcome.factor for one in changed}
     circuit = changed_circuit(numbers.circuit, values, outcome.trial.series)
     return _run(engine, circuit, outcome.figures, want, numbers)
 

@@ -9,14 +9,15 @@ from tauledger.report.wording import NO_NUMBER, nominal, number, part_title
 
 NAMES = {"margin": "phase margin", "gain_margin": "gain margin", "f_u": "f_u", "f_h": "f_H", "f_l": "f_L"}
 BIAS = "§"
-# The figure beside the wanted one, and that itself.
-_OTHERS = {
-    "margin": ("f_u", "margin"),
-    "gain_margin": ("f_u", "gain margin"),
-    "f_u": ("margin", "f_u"),
-    "f_h": ("gain", "f_H"),
-    "f_l": ("gain", "f_L"),
+# What is shown beside the wanted figure, and the head over that itself.
+BESIDE = {
+    "margin": ("f_u", "gain"),
+    "gain_margin": ("f_u", "gain"),
+    "f_u": ("margin", "gain"),
+    "f_h": ("gain",),
+    "f_l": ("gain",),
 }
+OWN = {"margin": "margin", "gain_margin": "gain margin", "f_u": "f_u", "f_h": "f_H", "f_l": "f_L"}
 Cells = tuple[str, ...]
 
 
@@ -48,7 +49,7 @@ def verdict(want: WantFacts) -> str:
 
 def heads(want: WantFacts) -> Cells:
     """Give the heads of the columns behind the change."""
-    return ("value", "by slope", *_OTHERS[want.quantity], "ngspice")
+    return ("value", "by slope", *BESIDE[want.quantity], OWN[want.quantity], "ngspice")
 
 
 def cells(want: WantFacts, one: Remedy) -> Cells:
@@ -59,7 +60,7 @@ def cells(want: WantFacts, one: Remedy) -> Cells:
         "margin": angle(one.phase_margin_deg),
         "gain": f"{one.gain_db:.2f} dB",
     }
-    others = (beside[head] for head in _OTHERS[want.quantity][:1])
+    others = (beside[head] for head in BESIDE[want.quantity])
     by_slope = "" if value is None or value.first_order is None else number(value.first_order, value.unit, 4)
     return (
         change_text(one),
