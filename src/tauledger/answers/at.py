@@ -8,12 +8,14 @@ import numpy as np
 
 from tauledger.answers.answer import Subject
 from tauledger.answers.elements import elements
+from tauledger.answers.simulated_unity import midband_phasor
 from tauledger.errors import InputError
 from tauledger.network.solve import response
 from tauledger.network.targets import PERCENT, gain_moves
 from tauledger.numbers import HIGHEST_HZ, Numbers
 from tauledger.quantity import engineering
 from tauledger.record import AtElement, AtFacts
+from tauledger.simulated import Simulated
 
 # By 10 % of an element: below these nobody looks.
 WORTH_A_FRACTION = 5e-3
@@ -39,17 +41,18 @@ def _at(subject: Subject, hz: float) -> AtFacts:
     numbers = subject.numbers
     exact = complex(response(numbers.network, np.array([hz]))[0]) if numbers.trusted else None
     beyond = None if exact is None else _beyond_midband(numbers, hz, exact)
-    run = None
+    run = run_beyond = run_deg = None
     if subject.engine is not None and numbers.simulated is not None:
         run = complex(subject.engine.sweep(np.array([hz])).response[0])
-    run_beyond = None if run is None else _simulated_beyond(numbers, hz, run, beyond)
+        run_beyond = _simulated_beyond(numbers.simulated, hz, run, beyond)
+        run_deg = run_beyond + _degrees(midband_phasor(numbers.simulated))
     return AtFacts(
         hz=hz,
         simulated_db=None if run is None else _db(run),
-        simulated_deg=None if run_beyond is None else run_beyond + _midband_deg(numbers),
+        simulated_deg=run_deg,
         simulated_beyond_deg=run_beyond,
         exact_db=None if exact is None else _db(exact),
-        exact_deg=None if beyond is None else beyond + _midband_deg(numbers),
+        exact_deg=None if beyond is None else beyond + _degrees(numbers.midband.gain),
         exact_beyond_deg=beyond,
         elements=_elements(numbers, hz) if exact is not None else (),
     )
@@ -59,16 +62,8 @@ def _db(h: complex) -> float:
     return 20.0 * math.log10(abs(h))
 
 
-def _midband_gain(numbers: Numbers) -> complex:
-    """Give the gain that phases are counted from: ngspice's own where the network is not trusted."""
-    if not numbers.trusted and numbers.simulated is not None:
-        return numbers.simulated.midband.gain
-    return numbers.midband.gain
-
-
-def _midband_deg(numbers: Numbers) -> float:
-    gain = _midband_gain(numbers)
-    return math.degrees(math.atan2(gain.imag, gain.real))
+def _degrees(h: complex) -> float:
+    return math.degrees(math.atan2(h.imag, h.real))
 
 
 def _beyond_midband(numbers: Numbers, hz: float, h: complex) -> float:
@@ -78,18 +73,17 @@ def _beyond_midband(numbers: Numbers, hz: float, h: complex) -> float:
     return angle.beyond_midband(hz, h)
 
 
-def _simulated_beyond(numbers: Numbers, hz: float, h: complex, exact_deg: float | None) -> float:
-    """Give ngspice's phase beyond mid-band; its whole turns are the network's, or else those of its sweep nearby."""
-    assert numbers.simulated is not None
-    deg = float(np.angle(h / _midband_gain(numbers), deg=True))
+def _simulated_beyond(simulated: Simulated, hz: float, h: complex, exact_deg: float | None) -> float:
+    """Give ngspice's phase beyond its mid-band; the whole turns are the network's, or those of the sweep nearby."""
+    reference = midband_phasor(simulated)
+    deg = float(np.angle(h / reference, deg=True))
     near = exact_deg
     if near is None:
-        sweep = numbers.simulated.sweep
-        turned = np.degrees(np.unwrap(np.angle(sweep.response / _midband_gain(numbers))))
-        places = np.abs(np.log(sweep.frequency_hz / hz))
-        reference = numbers.simulated.midband.frequency_hz or float(sweep.frequency_hz[0])
-        start = np.abs(np.log(sweep.frequency_hz / reference))
-        near = float(turned[np.argmin(places)] - 360.0 * np.round(turned[np.argmin(start)] / 360.0))
+        frequency = simulated.sweep.frequency_hz
+        turned = np.degrees(np.unwrap(np.angle(simulated.sweep.response / reference)))
+        start = simulated.midband.frequency_hz or float(frequency[0])
+        there, here = (turned[np.argmin(np.abs(np.log(frequency / place)))] for place in (hz, start))
+        near = float(there - 360.0 * np.round(here / 360.0))
     return deg + 360.0 * round((near - deg) / 360.0)
 
 

@@ -38,9 +38,9 @@ def simulate_unity(run: RunSweep, simulated: Simulated, *, reach_hz: float = 0.0
     run: asks the engine for the response at any frequencies. reach_hz: carry the sweep on to there at least.
     The phase is followed along the sweep from mid-band.
     """
-    midband = simulated.midband
     frequency, h = _outwards(run, simulated, reach_hz)
-    turned = np.degrees(np.unwrap(np.angle(h / midband.gain)))
+    reference = midband_phasor(simulated)
+    turned = np.degrees(np.unwrap(np.angle(h / reference)))
     below = np.flatnonzero(np.abs(h) < 1.0)
     if not len(below) or below[0] == 0:
         return None
@@ -49,11 +49,11 @@ def simulate_unity(run: RunSweep, simulated: Simulated, *, reach_hz: float = 0.0
         return float(np.log(abs(at)))
 
     def half_turn(at: complex) -> float:
-        return float(np.angle(-at / midband.gain))
+        return float(np.angle(-at / reference))
 
     k = int(below[0])
     hz, there = _narrowed(run, level, frequency[k - 1 : k + 1], h[k - 1 : k + 1])
-    phase = float(np.degrees(np.angle(there / midband.gain)))
+    phase = float(np.degrees(np.angle(there / reference)))
     phase += 360.0 * round((float(turned[k]) - phase) / 360.0)
     opposed = np.flatnonzero(turned <= -HALF_TURN_DEG)
     if not len(opposed) or opposed[0] == 0:
@@ -61,6 +61,19 @@ def simulate_unity(run: RunSweep, simulated: Simulated, *, reach_hz: float = 0.0
     k = int(opposed[0])
     turned_hz, left = _narrowed(run, half_turn, frequency[k - 1 : k + 1], h[k - 1 : k + 1])
     return SimulatedUnity(hz, HALF_TURN_DEG + phase, float(-20.0 * np.log10(abs(left))), turned_hz)
+
+
+def midband_phasor(simulated: Simulated) -> complex:
+    """Give exp(jφ) with the phase of ngspice's mid-band; of a plateau from DC on, the phase that the sweep tends to.
+
+    ngspice has no AC at 0 Hz; the phase is odd in f, so that two points tell it there but for the cube of f.
+    """
+    midband, sweep = simulated.midband, simulated.sweep
+    phase = float(np.angle(midband.gain))
+    if midband.frequency_hz == 0.0:
+        (f0, f1), (h0, h1) = sweep.frequency_hz[:2], sweep.response[:2]
+        phase = float(np.angle(h0) - np.angle(h1 / h0) * f0 / (f1 - f0))
+    return complex(np.exp(1j * phase))
 
 
 def _outwards(run: RunSweep, simulated: Simulated, reach_hz: float) -> tuple[Real, Complex]:
