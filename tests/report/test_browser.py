@@ -36,6 +36,14 @@ CUT_OFF = """() => [...document.querySelectorAll("svg.chart")].filter((svg) => s
   const wide = svg.parentElement.scrollWidth > svg.parentElement.clientWidth + 1 ? ["to be scrolled"] : [];
   return [...wide, ...words.map((text) => text.textContent)];
 })"""
+# What of the drawn circuits has to be scrolled, or is written smaller than 10 px.
+HARD_TO_READ = """() => [...document.querySelectorAll("svg.circuit")].flatMap((svg) => {
+  if (!svg.checkVisibility()) return [];
+  const scale = svg.getBoundingClientRect().width / svg.viewBox.baseVal.width;
+  const size = scale * parseFloat(getComputedStyle(svg).fontSize);
+  const hidden = svg.parentElement.scrollWidth > svg.parentElement.clientWidth + 1;
+  return size < 10 || hidden ? [svg.querySelector("title").textContent] : [];
+})"""
 # Relative luminance and contrast ratio as WCAG 2.2 has them, of every text against what lies behind it.
 FAINT = """() => {
   const channels = (color) => (color.match(/[\\d.]+/g) || []).map(Number);
@@ -94,6 +102,8 @@ def test_the_page_in_a_browser(browser: Browser, tmp_path: Path) -> None:
         page.set_viewport_size({"width": width, "height": 900})
         assert page.evaluate(TOO_WIDE) == []
         assert page.evaluate(CUT_OFF) == []
+        assert page.evaluate(HARD_TO_READ) == []
+        assert page.locator("svg.circuit:visible").count() == 2
         assert page.locator("svg.chart:visible").count() == 4
         assert page.evaluate("document.documentElement.scrollWidth") <= width
     for picture in page.locator("svg:visible").all():
@@ -105,7 +115,7 @@ def test_the_page_in_a_browser(browser: Browser, tmp_path: Path) -> None:
     bar = page.locator("#shares g[data-part='CL']").first
     page.locator("#shares tr[data-part='CL']").hover()
     assert "linked" in (bar.get_attribute("class") or "")
-    assert page.locator("svg.circuit g.linked").count() == 1
+    assert page.locator("svg.circuit g.linked:visible").count() == 1
     page.locator("h1").hover()
     assert page.locator(".linked").count() == 0
 

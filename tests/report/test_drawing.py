@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import itertools
 import re
+from collections.abc import Iterator
 from xml.etree import ElementTree
 
 import pytest
@@ -16,12 +17,25 @@ from tauledger.report.drawing.stage import MOST_STAGES, drawn_stages
 LETTER_PX = 7.2
 
 
-def texts(svg: str) -> list[tuple[float, float, str, str]]:
+def variants(svg: str) -> dict[str, ElementTree.Element]:
+    """The drawings of one stage by their kind: wide, middle, narrow."""
+    drawn = ElementTree.fromstring(f"<figure>{svg}</figure>")
+    return {(one.get("class") or "").split()[1]: one for one in drawn}
+
+
+def texts(svg: str, kind: str = "wide") -> list[tuple[float, float, str, str]]:
     """Give x, y, anchor and words of every text."""
-    return [
-        (float(text.get("x", "")), float(text.get("y", "")), text.get("text-anchor", ""), text.text or "")
-        for text in ElementTree.fromstring(svg).iter("text")
-    ]
+    return list(_texts(variants(svg)[kind], 0.0))
+
+
+def _texts(element: ElementTree.Element, down: float) -> Iterator[tuple[float, float, str, str]]:
+    moved = re.fullmatch(r"translate\(0 ([\d.]+)\)", element.get("transform", ""))
+    down += float(moved.group(1)) if moved else 0.0
+    if element.tag == "text":
+        at = (float(element.get("x", "")), down + float(element.get("y", "")))
+        yield (*at, element.get("text-anchor", ""), element.text or "")
+    for inner in element:
+        yield from _texts(inner, down)
 
 
 def drawings() -> tuple[str, ...]:
@@ -44,7 +58,7 @@ def test_gm_times_r_is_the_gain_of_the_stage() -> None:
 
 def points_down(svg: str) -> bool:
     """Whether the tip of the arrow beside the controlled source is its lowest point."""
-    wires = [line.get("points", "").split() for line in ElementTree.fromstring(svg).iter("polyline")]
+    wires = [line.get("points", "").split() for line in variants(svg)["wide"].iter("polyline")]
     (head,) = [[float(point.split(",")[1]) for point in points] for points in wires if len(points) == 3]
     return head[1] > head[0]
 
@@ -87,12 +101,25 @@ def test_a_resistor_is_a_rectangle_and_a_capacitor_two_plates() -> None:
     assert plates.group(1).count("H") == 2
 
 
-@pytest.mark.parametrize("svg", drawings(), ids=["input", "stage"])
-def test_nothing_is_written_over_another_or_beyond_the_edge(svg: str) -> None:
-    root = ElementTree.fromstring(svg)
-    _, _, width, height = (float(number) for number in root.get("viewBox", "").split())
+def long_stage() -> str:
+    """A stage whose output has a resistance and three capacitances, too long for a row of a medium screen."""
+    base, out, *others = ECHO_PREAMP.nodes
+    assert out.working is not None
+    terms = tuple(replace(out.working.capacitances[0], part=f"C{k}") for k in range(3))
+    more = replace(out, working=replace(out.working, capacitances=terms))
+    return drawn_stages(replace(ECHO_PREAMP, nodes=(base, more, *others)))[1][1]
+
+
+@pytest.mark.parametrize("kind", ["wide", "middle", "narrow"])
+@pytest.mark.parametrize("svg", [*drawings(), long_stage()], ids=["input", "stage", "long"])
+def test_nothing_is_written_over_another_or_beyond_the_edge(svg: str, kind: str) -> None:
+    if kind not in variants(svg):
+        assert svg != long_stage()
+        return
+    _, _, width, height = (float(number) for number in variants(svg)[kind].get("viewBox", "").split())
+    assert width <= {"wide": 1060.0, "middle": 760.0, "narrow": 410.0}[kind]
     boxes = []
-    for x, y, anchor, words in texts(svg):
+    for x, y, anchor, words in texts(svg, kind):
         long = LETTER_PX * len(words)
         left = {"start": x, "middle": x - long / 2.0, "end": x - long}[anchor]
         assert left >= 0.0
@@ -101,6 +128,14 @@ def test_nothing_is_written_over_another_or_beyond_the_edge(svg: str) -> None:
         boxes.append((left, left + long, y - 10.0, y))
     for (a, b, top, bottom), (c, d, above, below) in itertools.combinations(boxes, 2):
         assert b <= c or d <= a or bottom <= above or below <= top
+
+
+def test_every_element_stands_in_each_layout() -> None:
+    svg = long_stage()
+    told = {kind: {words for *_, words in texts(svg, kind)} for kind in ("wide", "middle", "narrow")}
+    assert told["wide"] == told["middle"]
+    assert told["narrow"] - told["wide"] == {"out, the same node"}
+    assert told["wide"] <= told["narrow"]
 
 
 def test_networks_that_are_no_chain_have_no_drawing() -> None:

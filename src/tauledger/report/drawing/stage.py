@@ -7,6 +7,7 @@ mid-band gain; each capacitance stands there with the part that counts at this n
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from itertools import pairwise
 
 from msgspec import Struct
@@ -36,6 +37,9 @@ SMALL = 0.03
 MOST_STAGES = 24
 FAITHFUL = 0.1
 SAME_OHM = 0.005
+ELEMENTS_A_ROW = 2
+# A letter of the drawing takes about so much, in px; a drawing that is wider than this is for a wide screen.
+LETTER, LEGIBLE = 7.0, 850.0
 
 
 class Element(Struct, frozen=True):
@@ -44,6 +48,36 @@ class Element(Struct, frozen=True):
     kind: str
     words: tuple[str, ...]
     part: str = ""
+
+
+class Source(Struct, frozen=True):
+    """What drives a node through its R_Th, in words."""
+
+    words: tuple[str, ...]
+
+
+class Controlled(Struct, frozen=True):
+    """A controlled current source: what it gives, in words, and whether it draws current from the node."""
+
+    words: tuple[str, ...]
+    down: bool
+
+
+class Node(Struct, frozen=True):
+    """A node with what hangs between it and ground."""
+
+    node: NodeRow
+    elements: tuple[Element, ...]
+
+
+Piece = Source | Controlled | Node
+
+
+class Row(Struct, frozen=True):
+    """One row of a drawing, and how wide it is in px."""
+
+    svg: str
+    width: float
 
 
 def drawable(review: Review) -> tuple[Stage, ...]:
@@ -74,7 +108,8 @@ def _as_drawn(stage: Stage, rows: dict[str, NodeRow]) -> bool:
 def drawn_stages(review: Review) -> tuple[tuple[str, str], ...]:
     """Give heading and SVG for each stage of the signal path, the source with its first node before them.
 
-    Empty where the network is not a chain of nodes with a resistance and a gain by hand.
+    Each is drawn twice, in one row and, for a small screen, in rows of two elements. Empty where the network is not a
+    chain of nodes with a resistance and a gain by hand.
     """
     chain = drawable(review)
     if not chain:
@@ -82,76 +117,134 @@ def drawn_stages(review: Review) -> tuple[tuple[str, str], ...]:
     rows = {node.name: node for node in review.nodes}
     first = chain[0]
     drive = review.drive[0].source if len(review.drive) == 1 else "sources"
+    title = f"Small-signal circuit of node 1: {_resistance(rows[first.node])}"
     drawings = [
-        (f"Source to {rows[first.node].title}", _draw_passive(review, first, rows[first.node], drive, number_of=0))
+        (f"Source to {rows[first.node].title}", _twice(_passive(review, first, rows[first.node], drive), 0, title))
     ]
     for k, (before, stage) in enumerate(pairwise(chain), start=1):
         what = f"{stage.role} {stage.owner}".strip()
-        heading = f"{what[:1].upper()}{what[1:]}: {rows[before.node].title} to {rows[stage.node].title}"
+        start, end = rows[before.node], rows[stage.node]
+        heading = f"{what[:1].upper()}{what[1:]}: {start.title} to {end.title}"
         if stage.owner:
-            svg = _draw_stage(review, rows[before.node], stage, rows[stage.node], number_of=k)
+            title = f"Small-signal circuit of stage {k}: {_resistance(start)}, {_resistance(end)}"
+            drawn = _twice(_stage(review, start, stage, end, after_another=k > 1), k, title)
         else:
-            svg = _draw_passive(review, stage, rows[stage.node], f"v({before.node})", number_of=k)
-        drawings.append((heading, svg))
+            title = f"Small-signal circuit of node {k + 1}: {_resistance(end)}"
+            drawn = _twice(_passive(review, stage, end, f"v({before.node})"), k, title)
+        drawings.append((heading, drawn))
     return tuple(drawings)
 
 
-def _draw_passive(review: Review, stage: Stage, node: NodeRow, drive: str, *, number_of: int) -> str:
-    """Draw what drives a node without amplifying, with the resistance and every capacitance that it sees there."""
-    pieces: list[str] = []
-    x = _source(pieces, (f"{number(stage.gain_hand, '', 3)} ·", drive), node, _elements(node, review)[1:])
-    title = f"Small-signal circuit of node {number_of + 1}: {_resistance(node)}"
-    return _svg(pieces, x, key=f"stage-{number_of}", title=title)
+def _passive(review: Review, stage: Stage, node: NodeRow, drive: str) -> tuple[Piece, ...]:
+    """What drives a node without amplifying, with the resistance and every capacitance that it sees there."""
+    return (Source((f"{number(stage.gain_hand, '', 3)} ·", drive)), Node(node, tuple(_elements(node, review)[1:])))
 
 
-def _draw_stage(review: Review, before: NodeRow, stage: Stage, node: NodeRow, *, number_of: int) -> str:
-    """Draw one stage: R and C at its input, its controlled source, R and every capacitance at its output."""
-    pieces: list[str] = []
+def _stage(review: Review, before: NodeRow, stage: Stage, node: NodeRow, *, after_another: bool) -> tuple[Piece, ...]:
+    """One stage: R and C at its input, its controlled source, R and every capacitance at its output."""
     together = Element("capacitor", ("C", number(before.capacitance_f, "F", 3)))
-    x = _source(pieces, ("from the", "stage before" if number_of > 1 else "source"), before, [together])
     gain, ohm = stage.gain_hand or 0.0, node.resistance_hand_ohm or 1.0
-    start = x + 24.0
-    words = (f"Gm·v({before.name})", number(abs(gain) / ohm, "S", 3))
-    pieces += [controlled_current(start, TOP, BOTTOM, down=gain < 0.0)]
-    pieces += [lines(start + 22, (TOP + BOTTOM) / 2.0, words)]
-    node_at = start + 104.0
-    elements = _elements(node, review)
-    last = _last(node_at, elements)
-    pieces += [wire((start, TOP), (node_at, TOP)), wire((start, BOTTOM), (last, BOTTOM)), ground(start, BOTTOM)]
-    x = _shunts(pieces, node_at, node, elements)
-    title = f"Small-signal circuit of stage {number_of}: {_resistance(before)}, {_resistance(node)}"
-    return _svg(pieces, x, key=f"stage-{number_of}", title=title)
+    return (
+        Source(("from the", "stage before" if after_another else "source")),
+        Node(before, (together,)),
+        Controlled((f"Gm·v({before.name})", number(abs(gain) / ohm, "S", 3)), down=gain < 0.0),
+        Node(node, tuple(_elements(node, review))),
+    )
 
 
 def _resistance(node: NodeRow) -> str:
     return f"{number(node.resistance_hand_ohm, 'Ω')} at {node.title}"
 
 
-def _svg(pieces: list[str], x: float, *, key: str, title: str) -> str:
-    width, height = x + 24.0, BOTTOM + 26.0
+def _twice(pieces: tuple[Piece, ...], number_of: int, title: str) -> str:
+    """Draw in one row, and in rows that a small screen holds; a long row also with each source in a row of its own."""
+    wide, width = _one_row(pieces)
+    narrow = _rows(pieces, first=1, others=ELEMENTS_A_ROW)
+    key = f"stage-{number_of}"
+    if width <= LEGIBLE:
+        middle, kind = "", "wide"
+    else:
+        apart = _rows(pieces, first=MOST_CAPACITORS + 1, others=1)
+        middle, kind = _svg(apart, key=f"{key}-middle", title=title, kind="middle"), "wide long"
+    narrowly = _svg(narrow, key=f"{key}-narrow", title=title, kind="narrow")
+    return _svg([wide], key=key, title=title, kind=kind) + middle + narrowly
+
+
+def _one_row(pieces: tuple[Piece, ...]) -> tuple[Row, float]:
+    drawn: list[str] = []
+    x = 0.0
+    for piece, after in zip(pieces, (*pieces[1:], None), strict=True):
+        match piece:
+            case Source():
+                assert isinstance(after, Node)
+                x = _source(drawn, piece, after)
+            case Controlled():
+                assert isinstance(after, Node)
+                x = _controlled(drawn, piece, x + 24.0, after.elements)
+            case Node():
+                x = _shunts(drawn, x, piece.node, piece.elements)
+    return Row("".join(drawn), x), x
+
+
+def _rows(pieces: tuple[Piece, ...], *, first: int, others: int) -> list[Row]:
+    """Give each source a row with the first elements of its node, then further rows with others of that node."""
+    rows: list[Row] = []
+    for source, node in zip(pieces[::2], pieces[1::2], strict=True):
+        assert isinstance(node, Node)
+        row, _ = _one_row((source, Node(node.node, node.elements[:first])))
+        rows.append(row)
+        for k in range(first, len(node.elements), others):
+            drawn: list[str] = []
+            elements = node.elements[k : k + others]
+            last = _last(MARGIN, elements)
+            drawn += [wire((MARGIN, BOTTOM), (last, BOTTOM)), ground(MARGIN, BOTTOM)]
+            x = _shunts(drawn, MARGIN, node.node, elements, label=f"{_at(node.node)}, the same node")
+            rows.append(Row("".join(drawn), x))
+    return rows
+
+
+def _svg(rows: list[Row], *, key: str, title: str, kind: str) -> str:
+    width, height = max(row.width for row in rows) + 24.0, BOTTOM + 26.0
+    drawn = "".join(
+        row.svg if k == 0 else f'<g transform="translate(0 {k * height:g})">{row.svg}</g>' for k, row in enumerate(rows)
+    )
     return (
-        f'<svg class="circuit" viewBox="0 0 {width:g} {height:g}" style="--width: {width:g}px" role="img" '
-        f'aria-labelledby="{key}-title"><title id="{key}-title">{escape(title)}</title>{"".join(pieces)}</svg>\n'
+        f'<svg class="circuit {kind}" viewBox="0 0 {width:g} {height * len(rows):g}" style="--width: {width:g}px" '
+        f'role="img" aria-labelledby="{key}-title"><title id="{key}-title">{escape(title)}</title>{drawn}</svg>\n'
     )
 
 
-def _source(pieces: list[str], words: tuple[str, ...], node: NodeRow, elements: list[Element]) -> float:
-    """Draw a source with R_Th and the elements at its node; gives where the next may start."""
+def _source(pieces: list[str], source: Source, node: Node) -> float:
+    """Draw a source with R_Th, and the rail below the elements at its node; gives where the node may start."""
     left = MARGIN + 22.0
-    pieces += [voltage_source(left, TOP, BOTTOM), lines(left + 23, (TOP + BOTTOM) / 2.0, words)]
+    pieces += [voltage_source(left, TOP, BOTTOM), lines(left + 23, (TOP + BOTTOM) / 2.0, source.words)]
     pieces += [wire((left, TOP), (left + 14, TOP)), resistor_across(left + 14, TOP, 104.0)]
     pieces.append(text(left + 66, TOP - 33, "R_Th", "middle", kind="strong"))
-    pieces.append(text(left + 66, TOP - 17, number(node.resistance_hand_ohm, "Ω"), "middle"))
+    pieces.append(text(left + 66, TOP - 17, number(node.node.resistance_hand_ohm, "Ω"), "middle"))
     start = left + 118.0
-    pieces += [wire((left, BOTTOM), (_last(start, elements), BOTTOM)), ground(left, BOTTOM)]
-    return _shunts(pieces, start, node, elements)
+    pieces += [wire((left, BOTTOM), (_last(start, node.elements), BOTTOM)), ground(left, BOTTOM)]
+    return start
 
 
-def _shunts(pieces: list[str], x: float, node: NodeRow, elements: list[Element]) -> float:
+def _controlled(pieces: list[str], source: Controlled, x: float, elements: tuple[Element, ...]) -> float:
+    """Draw a controlled source from x on, and the rail below; gives where its node may start."""
+    start = max(x, MARGIN + 10.0)
+    node_at = start + 104.0
+    pieces += [controlled_current(start, TOP, BOTTOM, down=source.down)]
+    pieces += [lines(start + 22, (TOP + BOTTOM) / 2.0, source.words)]
+    pieces += [wire((start, TOP), (node_at, TOP)), wire((start, BOTTOM), (_last(node_at, elements), BOTTOM))]
+    pieces.append(ground(start, BOTTOM))
+    return node_at
+
+
+def _shunts(
+    pieces: list[str], x: float, node: NodeRow, elements: tuple[Element, ...], *, label: str | None = None
+) -> float:
     """Hang the elements of a node between the rails from x on; gives where the next may start."""
     start = x
+    label = _at(node) if label is None else label
     pieces.append(dot(start, TOP))
-    pieces.append(text(start + 5, TOP - 17, _at(node), kind="strong"))
+    pieces.append(text(start + 5, TOP - 17, label, kind="strong"))
     for element in elements:
         x += 22.0
         symbol = resistor_down if element.kind == "resistor" else capacitor_down
@@ -165,7 +258,7 @@ def _shunts(pieces: list[str], x: float, node: NodeRow, elements: list[Element])
         pieces.append(f'<g data-part="{escape(element.part)}">{group}</g>' if element.part else group)
         pieces += [wire((start, TOP), (x, TOP))]
         x += COLUMN - 22.0
-    return x
+    return max(x, start + 5.0 + LETTER * len(label))
 
 
 def _own_ohm(term: CapacitanceTerm, node: NodeRow) -> float | None:
@@ -187,7 +280,7 @@ def _factor(factor: float) -> str:
     return f"{factor:.3g}" if abs(factor) < 1000.0 else f"{factor:.0f}"
 
 
-def _last(start: float, elements: list[Element]) -> float:
+def _last(start: float, elements: Sequence[Element]) -> float:
     """Give where the last of the elements at a node stands."""
     return start + 22.0 + COLUMN * (len(elements) - 1)
 
