@@ -22,6 +22,7 @@ _FAILED = re.compile(r"\baborted\b|check your input line|source stepping failed|
 _STEPPED = re.compile(r"stepping completed", re.I)
 _HARMLESS = re.compile(
     r"""^\s*$ | gmin\ stepping | gmin\ step | ^trying\ gmin | gmin\ increment | source\ step | ^supplies\ reduced
+    | lossy\ line\ .*\ not\ given,\ assumed\ zero
     | has\ no\ value,\ dc\ 0\ assumed | dc\ value\ used\ for\ op | compatibility\ mode | using\ sparse | spinit
     | there\ is\ no\ circuit\ loaded | ^command\ 'remcirc'\ is\ ignored
     | ^checking\ parameters\ for | \bp[ds]\ =\ \S+\ is\ less\ than\ w""",

@@ -81,6 +81,10 @@ def rerun(network: Network, midband: MidBand, edges: Edges, factors: Mapping[str
     """
     changed = scaled(network, factors)
     gain = float(abs(response(changed, np.array([midband.frequency_hz]))[0]))
+    if network.lines:
+        # the first of many crossings may be another one now
+        both = edge_frequencies(changed, midband)
+        return Recomputed(both.f_high, both.f_low, gain)
     starts = [edge.hz if edge is not None else None for edge in (edges.f_high, edges.f_low)]
     known = np.array([hz for hz in starts if hz is not None])
     followed = _followed(changed, HALF_POWER * gain, known) if len(known) else known

@@ -19,6 +19,7 @@ import numpy as np
 from msgspec import Struct
 from numpy.typing import NDArray
 
+from tauledger.circuit import GROUND
 from tauledger.devices.family import inner_node
 from tauledger.devices.parts import (
     Part,
@@ -29,6 +30,7 @@ from tauledger.devices.parts import (
     voltage_gain,
     voltage_source,
 )
+from tauledger.errors import InputError
 from tauledger.network.assemble import Network, assemble, incidence
 
 if TYPE_CHECKING:
@@ -156,6 +158,30 @@ def at_rest(network: Network) -> Network:
 def lumped(network: Network) -> Network:
     """Give the network with every line as one section, half of C at either end: true far below the first resonance."""
     return _replaced(network, lumped_section=True)
+
+
+def require_held_ends(network: Network) -> None:
+    """Raise InputError where nothing but a line holds a node: it passes no voltage common to both of its conductors."""
+    held: dict[str, str] = {}
+    for part in network.parts:
+        if part.kind == "line":
+            pairs = [part.nodes[:2], part.nodes[2:]]
+        elif part.kind == "block":
+            pairs = [(part.nodes[0], node) for node in part.nodes[1:]]
+        elif part.kind in ("current source", "transconductance", "transcapacitance", "current gain"):
+            continue
+        else:
+            pairs = [part.nodes[:2]]
+        for a, b in pairs:
+            held[_root(held, a)] = _root(held, b)
+    ground = _root(held, GROUND)
+    for part in network.lines:
+        for pair in (part.nodes[:2], part.nodes[2:]):
+            if _root(held, pair[0]) != ground:
+                raise InputError(
+                    f"{part.owner}: nothing but the line holds the nodes {pair[0]} and {pair[1]}",
+                    f"tie {pair[1]} to ground, or to the other end: a line passes no voltage common to its conductors",
+                )
 
 
 def delay_of_waves(network: Network) -> float:

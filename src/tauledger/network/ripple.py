@@ -16,7 +16,7 @@ from tauledger.network.solve import Complex, Real, response
 PER_PERIOD = 24
 CLOSER = 17
 # Beyond the frequency where |H| has fallen, so many times as far.
-BEYOND = 4.0
+BEYOND = 2.0
 MOST_POINTS = 20_000
 
 
@@ -37,7 +37,7 @@ def with_ripple(
 ) -> tuple[Real, Complex]:
     """Give the scan (k,) of frequency and H with the evenly spaced frequencies among it.
 
-    frequency_hz: an even logarithmic scan (k,), h: H there. from_hz: where the way outwards begins, to four times the
+    frequency_hz: an even logarithmic scan (k,), h: H there. from_hz: where the way outwards begins, to twice the
     frequency at which |H| first falls below `level`, V or A.
     """
     spacing = spacing_hz(network)

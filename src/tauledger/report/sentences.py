@@ -7,7 +7,7 @@ import re
 
 from msgspec import Struct
 
-from tauledger.record import CauseFacts, EdgeFacts, NodeRow, NoteFacts, PartRow, PoleFacts, Review
+from tauledger.record import CauseFacts, EdgeFacts, Help, NodeRow, NoteFacts, PartRow, PoleFacts, Review
 from tauledger.report.lower import in_parallel
 from tauledger.report.tables.helps import change, kind
 from tauledger.report.tables.setting import output_text
@@ -17,6 +17,7 @@ from tauledger.report.unity import decibels, degrees, margins, signed
 from tauledger.report.wording import (
     AGREEMENT_WARNS,
     EDGE,
+    amount,
     fraction,
     move,
     network_rejected,
@@ -26,6 +27,7 @@ from tauledger.report.wording import (
     part_titles,
     part_unit,
     retitled,
+    share,
     symbol,
     withheld,
 )
@@ -72,6 +74,9 @@ def headline(review: Review) -> str:
     else:
         band = "without band edges in the range looked at"
     said = f"{gain} {band}"
+    line = _line_at_the_edge(review)
+    if line is not None:
+        return f"{said}; above all {part_title(line.name, line.owner)} sets the upper edge."
     node = limiting_node(review)
     if node is None:
         return f"{said}."
@@ -253,7 +258,21 @@ def believed(review: Review) -> str:
     )
 
 
+def _line_at_the_edge(review: Review) -> PartRow | None:
+    """Give the line that has the largest share of f_H, if that is a line; no node and no pole stands for it."""
+    shared = [part for part in review.parts if part.share.f_high is not None]
+    largest = max(shared, key=lambda part: abs(part.share.f_high or 0.0), default=None)
+    return largest if largest is not None and largest.kind == "line" else None
+
+
 def _what_limits(review: Review) -> str:
+    line = _line_at_the_edge(review)
+    if line is not None:
+        nodes = f"{line.nodes[0]} to {line.nodes[2]}"
+        return (
+            f"The line {line.owner} from {nodes}, {amount(line)}: {part_title(line.name, line.owner)} has a share of "
+            f"{share(line.share.f_high)}. No node's time constant holds it."
+        )
     node = limiting_node(review)
     if node is None:
         return ""
@@ -362,14 +381,19 @@ def _what_helps(review: Review) -> str:
 
 def _what_helps_most(review: Review, exact: float) -> str:
     """Name of each kind of element the one of which 10 % less or more raises f_H most, with what it costs in gain."""
+
+    def effect_of(one: Help) -> float:
+        rerun = change(one.f_high_rerun_hz, exact)
+        return (one.f_high or 0.0) if rerun is None else rerun
+
     told = []
     for which, said in (("free", "leaves the bias alone"), ("bias", "moves the bias too"), ("device", "in a device")):
         best = max(
             (one for one in review.helps if kind(one) == which and one.f_high),
-            key=lambda one: one.f_high or 0.0,
+            key=effect_of,
             default=None,
         )
-        if best is None or (best.f_high or 0.0) < WORTH_TELLING:
+        if best is None or effect_of(best) < WORTH_TELLING:
             continue
         rerun = change(best.f_high_rerun_hz, exact)
         effect, gain = (best.f_high, best.gain) if rerun is None else (rerun, best.gain_rerun)

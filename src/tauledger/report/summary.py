@@ -34,7 +34,7 @@ def band(review: Review) -> Section:
     for name, edge in (("f_L", review.f_low), ("f_H", review.f_high)):
         if edge is None:
             rows.append(Row((name, "none", *[""] * 5)))
-            if not any(note.where == name for note in review.notes):
+            if not any(note.where == name and note.note != "peaking" for note in review.notes):
                 remarks.append(_no_edge(name, review.midband))
             continue
         rows.append(_edge_row(name, edge))
