@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 from tauledger.record import AtElement, AtFacts, PeakElement, PeakFacts, Review
-from tauledger.report.layout import Block, Row, Section, Table
-from tauledger.report.unity import degrees, signed
+from tauledger.report.layout import Block, Prose, Row, Section, Table
+from tauledger.report.unity import FIRST_ORDER, degrees, signed
 from tauledger.report.wording import EDGE, NO_NUMBER, move, nominal, number, part_title
 
 _MOST = 4
@@ -23,6 +23,8 @@ def gain_and_phase(review: Review, *, verbose: bool = False) -> Section:
         if shown:
             less = tuple(Row(at_cells(element)) for element in shown)
             blocks.append(Table("lrrr", (f"10 % less of, at {number(one.hz, 'Hz')}", "value", "gain", "phase"), less))
+    if any(one.elements for one in review.at):
+        blocks.append(Prose(FIRST_ORDER, lead="  "))
     return Section(tuple(blocks), major=True)
 
 
@@ -39,6 +41,7 @@ def peaking(review: Review, *, verbose: bool = False) -> Section:
                 rows.append(Row(("  recomputed", "", signed(element.rerun_db - one.exact_db, " dB"))))
         if rows:
             blocks.append(Table("lrr", ("10 % less of", "value", "peaking"), tuple(rows)))
+            blocks.append(Prose(FIRST_ORDER, lead="  "))
     return Section(tuple(blocks), major=True)
 
 

@@ -8,6 +8,7 @@ from tauledger.report.wording import NO_NUMBER, move, nominal, number, part_titl
 
 _MOST_ELEMENTS, _MOST_NODES = 6, 4
 _BIAS, _DEVICE = "§", "¶"
+FIRST_ORDER = "to first order, operating point held"
 MARKS = f"{_BIAS} takes part in the operating point, and moves it; {_DEVICE} inside a device"
 
 
@@ -35,8 +36,8 @@ def who_sets(review: Review, *, verbose: bool = False) -> Section:
             rows.append(Row(("  recomputed", *again_cells(one, facts))))
     head = ("WHO SETS f_u AND MARGIN: 10 % less of", "value", "f_u", "margin", "gain margin")
     blocks: list[Block] = [Table("lrrrr", head, tuple(rows))]
-    if any(not one.free for one in shown):
-        blocks.append(Prose(MARKS, lead="  "))
+    marks = f"; {MARKS}" if any(not one.free for one in shown) else ""
+    blocks.append(Prose(f"{FIRST_ORDER}{marks}", lead="  "))
     nodes = facts.nodes if verbose else facts.nodes[:_MOST_NODES]
     if nodes:
         at = tuple(Row(node_cells(node, facts)) for node in nodes)
