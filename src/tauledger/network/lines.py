@@ -156,7 +156,10 @@ def at_rest(network: Network) -> Network:
 
 
 def lumped(network: Network) -> Network:
-    """Give the network with every line as one section, half of C at either end: true far below the first resonance."""
+    """Give the network with every line as one section, half of C at either end: where the response happens, if not how.
+
+    True far below the first resonance of a line of little loss.
+    """
     return _replaced(network, lumped_section=True)
 
 

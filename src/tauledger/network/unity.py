@@ -13,9 +13,11 @@ from __future__ import annotations
 import numpy as np
 from msgspec import Struct
 
+from tauledger.network.angle import scanned_angle
 from tauledger.network.assemble import Network
 from tauledger.network.edges import LAST_STEP, Edges, crossing, find_edges
 from tauledger.network.midband import MidBand
+from tauledger.network.ripple import with_ripple
 from tauledger.network.solve import Complex, Real, log_slope, on_axis, response, solve
 
 HALF_TURN_DEG = 180.0
@@ -59,6 +61,9 @@ def find_unity(network: Network, midband: MidBand, edges: Edges | None = None) -
     if angle is None:
         return None
     frequency, h = _outwards(network, midband, edges)
+    if network.lines:
+        frequency, h = with_ripple(network, frequency, h, from_hz=midband.frequency_hz, level=1.0)
+        angle = scanned_angle(midband, frequency, h)
     over = np.abs(h) >= 1.0
     at = [
         crossing(network, 1.0, float(frequency[k]), float(frequency[k + 1]))
