@@ -10,7 +10,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from tauledger.circuit import NO_CHANGE, Apply, Circuit, Formula, Number, Passives, Port, Voltage, terminals_of
+from tauledger.circuit import NO_CHANGE, Apply, Change, Circuit, Formula, Number, Passives, Port, Voltage, terminals_of
 from tauledger.devices.derivative import at_bias
 from tauledger.engine.client import Engine
 from tauledger.errors import InputError, NetlistError
@@ -141,17 +141,23 @@ RO out 0 200
 VS out x 0
 B2 y 0 v=1k*i(VS)+pwl(v(e),-1,-2,0,0,1,3,8,5) tc1=1m temp=60
 RX x 0 3k
-RY y z 1k
+RY y z 1k tc1=2m
 CY z 0 10p
-.print ac v(z)
+R3 z w r='1k*(1+0.1*v(y))' tc1=3m tc2=20u temp=50 m=2
+L1 w u l='20u*(1+0.3*v(y)+0.1*i(VIN))' tc1=4m m=3
+C4 w 0 c='20p*(1+0.1*v(y))' tc1=5m m=2
+C5 u 0 q='30p*v(u)+2p*v(u)^2' tc1=6m tc2=10u
+B3 u 0 i=0.1m*v(u)+v(y)*ddt(v(u))
+.print ac v(u)
 .end
 """
 
 
-def test_a_board_of_formulas_is_rebuilt_to_rounding(tmp_path: Path, engine: Engine) -> None:
+@pytest.mark.parametrize("celsius", [-40.0, 27.0, 125.0])
+def test_a_board_of_formulas_is_rebuilt_to_rounding(celsius: float, tmp_path: Path, engine: Engine) -> None:
     path = tmp_path / "board.cir"
     path.write_text(BOARD)
-    numbers = solve(read(path), NO_CHANGE, engine)
+    numbers = solve(read(path), Change(temperature_c=celsius), engine)
     assert numbers.agreement is not None
     assert numbers.agreement.max_relative_error <= 1e-9
 
@@ -160,8 +166,8 @@ def test_a_board_of_formulas_is_rebuilt_to_rounding(tmp_path: Path, engine: Engi
     ("card", "says"),
     [
         ("B1 0 b i=1m*v(a)*hertz", "hertz"),
-        ("B1 0 b i=1n*ddt(v(a))", "ddt"),
         ("C1 b 0 q='1n*i(VA)'", "current"),
+        ("L1 b 0 l='1m*i(L2)'\nL2 b 0 l='1m*v(a)'", "element with a current"),
     ],
 )
 def test_what_is_no_conductance_or_capacitance_is_refused_at_its_line(card: str, says: str, tmp_path: Path) -> None:
@@ -169,6 +175,16 @@ def test_what_is_no_conductance_or_capacitance_is_refused_at_its_line(card: str,
     path.write_text(f"Gauge\nVA a 0 AC 1\nRB b 0 1k\n{card}\n.print ac v(b)\n.end\n")
     with pytest.raises(NetlistError, match=rf"board\.cir:4:.*{says}"):
         elaborate(read(path), NO_CHANGE)
+
+
+def test_what_ngspice_reads_past_beside_a_formula_is_told(tmp_path: Path) -> None:
+    path = tmp_path / "board.cir"
+    path.write_text(
+        "Gauge\nVA a 0 AC 1\nR1 a b r='1k*(1+v(a))' ac=5k tc1=1m dtemp=3\nB1 b 0 i=ddt(v(b))\n.print ac v(b)\n.end\n"
+    )
+    told = {note.where.split(":")[-1]: note.says for note in elaborate(read(path), NO_CHANGE).notes}
+    assert told["3"].endswith("ngspice reads past its ac, dtemp")
+    assert "a derivative by time (ddt) as nothing" in told["4"]
 
 
 def test_a_formula_without_derivative_names_its_element() -> None:

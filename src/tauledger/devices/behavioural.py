@@ -1,8 +1,11 @@
-"""Sources, resistors and capacitors given by a formula: linear in what the formula depends on.
+"""Sources, resistors, capacitors and inductors given by a formula: linear in what the formula depends on.
 
 A current i(v, …) is one transconductance per voltage and one current gain per current in it, a voltage one gain each in
-series. A resistor r(v, …) carries v_ab/r. A capacitor c(v, …) has the capacitance of its operating point alone (that is
-what ngspice takes), one given by its charge q(v, …) the derivative of the charge.
+series. A resistor r(v, …) carries v_ab/r. A capacitor c(v, …) or inductor l(v, …) has the value of its operating point
+alone (that is what ngspice takes), a capacitor given by its charge q(v, …) the derivative of the charge.
+
+ngspice makes B sources of all of them. Measured: tc1 and tc2 of such a resistor multiply r and those of an inductor l,
+but those of a capacitor divide c or q; they count from the circuit's temperature, never from one of the card.
 """
 
 from __future__ import annotations
@@ -18,6 +21,7 @@ from tauledger.devices.parts import (
     capacitance,
     conductance,
     current_gain,
+    inductance,
     transcapacitance,
     transconductance,
     transresistance,
@@ -36,9 +40,8 @@ WORDS = {
     "G": "voltage-controlled current source",
     "R": "resistor",
     "C": "capacitor",
+    "L": "inductor",
 }
-# What has no one derivative at the operating point: a derivative by time, and the frequency itself.
-WITHOUT_DERIVATIVE = frozenset({"ddt"})
 
 
 def _linearise(circuit: Circuit, element: Element, bias: Bias) -> Device:
@@ -58,13 +61,18 @@ def _linearise(circuit: Circuit, element: Element, bias: Bias) -> Device:
         case "r":
             across = Voltage(*element.nodes)
             volt = float(bias.voltages[element.nodes[0]] - bias.voltages[element.nodes[1]])
+            m /= _warmth(circuit, element)
             slopes = {control: -m * volt * slope / found.value**2 for control, slope in found.by.items()}
             slopes[across] = slopes.get(across, 0.0) + m / found.value
             parts = tuple(_currents(circuit, element, slopes, "g_ab"))
         case "c":
             a, b = (circuit.nodes[node] for node in element.nodes)
-            parts = (capacitance(element.name, a, b, m * found.value),)
+            parts = (capacitance(element.name, a, b, m / _warmth(circuit, element) * found.value),)
+        case "l":
+            a, b = (circuit.nodes[node] for node in element.nodes)
+            parts = (inductance(element.name, a, b, _warmth(circuit, element) / m * found.value),)
         case _:
+            m /= _warmth(circuit, element)
             parts = tuple(_charges(circuit, element, {control: m * slope for control, slope in found.by.items()}))
     cell = cell_of(parts[0]) if len(parts) == 1 else None
     return Device(element.name, WORDS[element.letter], "", (), (), cell, parts)
@@ -77,6 +85,12 @@ def _factor(circuit: Circuit, element: Element) -> float:
         return m
     rise = temperature_rise(circuit, element, None)
     return m * polynomial_factor(element.parameter("tc1", 0.0), element.parameter("tc2", 0.0), rise)
+
+
+def _warmth(circuit: Circuit, element: Element) -> float:
+    """1 + tc1·ΔT + tc2·ΔT² of a resistor, capacitor or inductor, ΔT that of the whole circuit."""
+    rise = circuit.temperature_c - circuit.tnom_c
+    return polynomial_factor(element.parameter("tc1", 0.0), element.parameter("tc2", 0.0), rise)
 
 
 def _quantity(element: Element) -> str:
@@ -133,15 +147,13 @@ def _charges(circuit: Circuit, element: Element, by: Mapping[Control, float]) ->
 def _refuse(element: Element, _model: Model | None) -> Refusal | None:
     if element.formula is None:
         return Refusal("", f"a {WORDS[element.letter]} without a formula is not one of these", "")
-    held = set(_names(element.formula))
-    if "hertz" in held:
+    if "hertz" in _names(element.formula):
         return Refusal(
             element.quantity,
-            "a formula of the frequency (hertz) is neither conductance nor capacitance: it cannot be rebuilt",
+            "a formula of the frequency (hertz) cannot be rebuilt: in ngspice it is a factor of the frequency without "
+            "a phase, which no R, C, L and sources have",
             "build the frequency dependence from R, C and L",
         )
-    if held & WITHOUT_DERIVATIVE:
-        return Refusal(element.quantity, "a derivative by time (ddt) in a formula cannot be rebuilt", "use a capacitor")
     if element.quantity == "q" and _depends_on_current(element.formula):
         return Refusal("q", "a charge that depends on a current cannot be rebuilt", "let it depend on voltages")
     return None
@@ -183,6 +195,7 @@ BEHAVIOURAL: tuple[Family, ...] = (
     _family("B", ENDS, names("m temp dtemp tc1 tc2")),
     _family("E", ENDS, frozenset({"gain"})),
     _family("G", ENDS, frozenset({"gain", "m"})),
-    _family("R", ENDS, frozenset({"m"})),
-    _family("C", ENDS, frozenset({"m"})),
+    _family("R", ENDS, names("m tc1 tc2")),
+    _family("C", ENDS, names("m tc1 tc2")),
+    _family("L", ENDS, names("m tc1 tc2")),
 )

@@ -2,7 +2,7 @@
 
 Both are carried through the formula together, as ngspice understands its functions: x^y and pow(x, y) are |x|^y,
 pwr(x, y) keeps the sign of x, log is natural, a comparison is 1 or 0 and flat, pwl goes on beyond its ends as at them
-and a table stays.
+and a table stays. A derivative by time, ddt, is nothing: at rest, and in ngspice's AC analysis (measured) as well.
 
 Source: Griewank and Walther, "Evaluating Derivatives", 2nd ed., 2008, chapter 3 (forward mode).
 """
@@ -73,6 +73,8 @@ def _apply(function: str, x: Sequence[Slope]) -> Slope:
     match function, len(x):
         case "-", 1:
             return _chain(-x[0].value, (-1.0, x[0]))
+        case "ddt", 1:
+            return Slope(0.0, {})
         case "!", 1:
             return Slope(float(not x[0].value), {})
         case (("?:" | "ternary_fcn"), 3):

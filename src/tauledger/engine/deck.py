@@ -107,6 +107,8 @@ class _Words(Struct, frozen=True):
 
 def has_branch_current(element: Element) -> bool:
     """Say whether the engine gives a current through this element."""
+    if element.letter == "L" and element.formula is not None:
+        return False
     return element.letter in WITH_BRANCH_CURRENT or (_letter(element) == "B" and element.quantity == "v")
 
 

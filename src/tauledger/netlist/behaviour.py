@@ -165,6 +165,13 @@ def extent(formula: circuit.Formula) -> Extent:
     return measured(formula)
 
 
+def applies(formula: circuit.Formula, function: str) -> bool:
+    """Say whether a function is called anywhere in a formula."""
+    if not isinstance(formula, circuit.Apply):
+        return False
+    return formula.function == function or any(applies(argument, function) for argument in formula.arguments)
+
+
 def _fault_at(site: Site, expression: Behaviour) -> Fault:
     def fault(tree: Tree, message: str, hint: str) -> NetlistError:
         wide = len(tree.text) if isinstance(tree, Name) else len(tree.function) if isinstance(tree, Call) else 1

@@ -10,7 +10,7 @@ from tauledger.devices.catalogue import choose, families_of
 from tauledger.devices.family import Refusal
 from tauledger.errors import Diagnostic, InputError, NetlistError
 from tauledger.netlist.assignments import ALL
-from tauledger.netlist.behaviour import MOST_DEEP, MOST_PARTS, extent, formula_of
+from tauledger.netlist.behaviour import MOST_DEEP, MOST_PARTS, applies, extent, formula_of
 from tauledger.netlist.bulk import add_run
 from tauledger.netlist.conditions import counts
 from tauledger.netlist.controlled import behavioural, controlled, coupling, line
@@ -333,6 +333,9 @@ def _formula(
         raise too_large from error
     if whole.depth > MOST_DEEP or whole.size > MOST_PARTS:
         raise too_large
+    if applies(found, "ddt"):
+        says = "ngspice's AC analysis takes a derivative by time (ddt) as nothing, and so does the rebuilt network"
+        around.scope.notes.append(ReadingNote(site.where, says))
     if part.table:
         return circuit.Apply("table", (found, *map(circuit.Number, part.table)))
     return found

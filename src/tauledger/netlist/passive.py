@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from tauledger.circuit import fold
+from tauledger.circuit import ReadingNote, fold
 from tauledger.netlist.diagnostics import Site, nearest
 from tauledger.netlist.elements import (
     ElementCard,
@@ -32,6 +32,7 @@ NUMBERS = {
 READ_PAST = {"R": frozenset({"noisy", "noise"}), "C": frozenset({"ic"}), "L": frozenset({"ic"})}
 # Without a coefficient or a model the element's own temperature changes nothing.
 OF_TEMPERATURE = frozenset({"temp", "dtemp"})
+OF_FORMULA = frozenset({"tc1", "tc2"})
 
 
 def passive(site: Site, card: Fields, letter: str, models: frozenset[str], scope: Scope) -> ElementCard:
@@ -75,6 +76,11 @@ def passive(site: Site, card: Fields, letter: str, models: frozenset[str], scope
         raise site.fault(len(site.card.text), "the value is missing", f"write {SHAPE[letter]}")
     plus, minus = nodes(site, places[:2])
     if isinstance(given, Behaviour):
+        past = [name for name in parameters if name not in OF_FORMULA]
+        if past:
+            says = f"{card.name.text} is given by a formula: ngspice reads past its {', '.join(past)}"
+            scope.notes.append(ReadingNote(site.where, says))
+            parameters = {name: value for name, value in parameters.items() if name in OF_FORMULA}
         return ElementCard(
             (plus, minus),
             tuple(parameters.items()),

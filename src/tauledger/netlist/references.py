@@ -20,9 +20,10 @@ MEASURED = frozenset("VEHL")
 def check_references(netlist: Netlist, draft: Draft, faults: list[Diagnostic]) -> None:
     """Replace each reference by the name of the element it means; a fault is added for one that means none."""
     coils = {fold(name): name for name, _, _ in inductors(draft)}
-    coils |= {fold(element.name): element.name for element in draft.elements if element.letter == "L"}
+    formulas = [element for element in draft.elements if element.letter == "L" and element.formula is not None]
+    coils |= {fold(e.name): e.name for e in draft.elements if e.letter == "L" and e not in formulas}
     sources = {fold(element.name): element.name for element in draft.elements if element.letter == "V"}
-    measured = {fold(e.name): e.name for e in draft.elements if e.letter in MEASURED} | coils
+    measured = {fold(e.name): e.name for e in draft.elements if e.letter in MEASURED and e not in formulas} | coils
     for k, element in enumerate(draft.elements):
         if not element.references and element.formula is None:
             continue
