@@ -181,10 +181,12 @@ def _narrow(value_at: Callable[[Real], Real], low: float, high: float) -> float:
     """Find where a value changes its sign between two frequencies, a batch of points at a time, in ln f."""
     for _ in range(ROUNDS):
         points = np.geomspace(low, high, NARROWED_TO)
-        positive = value_at(points) > 0.0
+        value = value_at(points)
+        positive = value > 0.0
         k = int(np.argmax(positive != positive[0]))
         if k == 0:
-            break
+            # rounding has put the change beyond an end, which is the place itself
+            return float(points[int(np.argmin(np.abs(value)))])
         low, high = float(points[k - 1]), float(points[k])
     return float(np.sqrt(low * high))
 
