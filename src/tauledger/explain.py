@@ -22,6 +22,7 @@ from tauledger.hand.combine import Combined, combine_lower, combine_upper
 from tauledger.hand.effects import pole_effects
 from tauledger.hand.estimate import HandEstimate
 from tauledger.hand.halves import images
+from tauledger.hand.inductors import inductor_rows
 from tauledger.hand.lower import lower_rows, nearest_zero_owner
 from tauledger.hand.methods import methods, weighted_lower, weighted_upper
 from tauledger.hand.poles import HandPole, hand_poles
@@ -93,7 +94,7 @@ def explain(numbers: Numbers) -> Explanation:
     if worked:
         open_rows, short_rows = open_constants(bands), short_constants(bands)
         check((*open_identities(open_rows), *weight_identities(bands, open_rows), *short_identities(short_rows)))
-        hand, upper, lower = _by_hand(numbers, open_rows, rest)
+        hand, upper, lower = _by_hand(numbers, open_rows, short_rows, rest)
     evidence = Evidence(
         bands=bands,
         poles=poles,
@@ -101,12 +102,13 @@ def explain(numbers: Numbers) -> Explanation:
         devices=numbers.devices,
         nodes=hand.nodes if hand else (),
         capacitors=hand.lower if hand else (),
+        inductors=hand.inductors if hand else (),
         upper=_evidence("f_high", edges.f_high, hand, upper, shares_high, rest.f_high if rest else None),
         lower=_evidence("f_low", edges.f_low, hand, lower, shares_low, rest.f_low if rest else None),
         stepped=numbers.bias is not None and numbers.bias.stepped,
         images=images(hand.nodes) if hand else {},
         lines=network.lines,
-        followed_to_hz=followed_to_hz(network) if network.lines else None,
+        followed_to_hz=_followed_to_hz(numbers),
     )
     effects: dict[complex, float] = {}
     for combined, is_lower in ((upper, False), (lower, True)):
@@ -167,19 +169,22 @@ def _at_rest(numbers: Numbers) -> EdgeFrequencies | None:
     return edge_frequencies(at_rest(numbers.network), numbers.midband)
 
 
+def _followed_to_hz(numbers: Numbers) -> float | None:
+    """Give where the scan stops following the ripple of lines; None where it follows it to its end."""
+    limit = followed_to_hz(numbers.network)
+    return limit if limit is not None and limit < float(numbers.edges.frequency_hz[-1]) else None
+
+
 def _by_hand(
-    numbers: Numbers, constants: OpenConstants, rest: EdgeFrequencies | None
+    numbers: Numbers, constants: OpenConstants, shorts: ShortConstants, rest: EdgeFrequencies | None
 ) -> tuple[HandEstimate, Combined, Combined]:
     bands, devices, edges = numbers.bands, numbers.devices, numbers.edges
     high, low = (edge.hz if edge is not None else None for edge in (edges.f_high, edges.f_low))
     whole, of_lines = EdgeFrequencies(low, high), EdgeFrequencies(None, None)
     if rest is not None:
         whole, of_lines = rest, whole
-    lines = numbers.network.lines
-    why = (
-        f"{', '.join(in_words(line) for line in lines)}: {'lines' if len(lines) > 1 else 'a line'}, till here as at DC"
-    )
-    nodes, capacitors = signal_nodes(bands, devices), lower_rows(bands, devices)
+    why = f"{in_words(numbers.network.lines)}, till here as at DC"
+    nodes, capacitors = signal_nodes(bands, devices), lower_rows(bands, devices, shorts)
     upper_poles, lower_poles = pole_frequencies(bands.upper), pole_frequencies(bands.lower)
     upper_zeros, lower_zeros = zero_frequencies(bands.upper, upper_poles), zero_frequencies(bands.lower, lower_poles)
     if bands.gain_setting:
@@ -187,7 +192,8 @@ def _by_hand(
         omega = abs(bands.s_mid)
         upper_poles, upper_zeros = (roots[np.abs(roots) > omega] for roots in (upper_poles, upper_zeros))
         lower_poles, lower_zeros = (roots[np.abs(roots) < omega] for roots in (lower_poles, lower_zeros))
-    upper = combine_upper(nodes, upper_poles, upper_zeros)
+    inductors = inductor_rows(bands, devices, constants)
+    upper = combine_upper(nodes, upper_poles, upper_zeros, inductors)
     lower = combine_lower(capacitors, lower_poles, lower_zeros)
     hand = HandEstimate(
         nodes=nodes,
@@ -201,6 +207,7 @@ def _by_hand(
                 full_hz=whole.f_high,
                 stable=numbers.poles.stable,
                 lines=(why, of_lines.f_high) if rest is not None else None,
+                inductors=inductors,
             ),
             *lower_steps(
                 capacitors,
@@ -222,6 +229,7 @@ def _by_hand(
         sigma=upper.sigma,
         hand_f_high_hz=upper.lowest,
         hand_f_low_hz=lower.lowest,
+        inductors=inductors,
     )
     return hand, upper, lower
 

@@ -223,6 +223,24 @@ class NodeRow(Struct, frozen=True):
     second: bool = False
 
 
+class InductorFacts(Struct, frozen=True):
+    """One inductor that is short at mid-band, in the upper budget: `time_constant_s` is L/R by hand, beside it exact.
+
+    title: as the trade says it. source: where R by hand comes from, as in `Working`; text: how.
+    """
+
+    part: str
+    title: str
+    in_path: bool
+    henry: float
+    resistance_hand_ohm: float
+    resistance_exact_ohm: float
+    time_constant_s: float
+    time_constant_exact_s: float
+    source: str
+    text: str
+
+
 class TenPercent(Struct, frozen=True):
     """Band edges recomputed with this part 10 % smaller, bias frozen."""
 
@@ -639,14 +657,24 @@ class ImpedancePoint(Struct, frozen=True):
     simulated_parallel_farad: float | None = None
 
 
+class ImpedanceCurvePoint(Struct, frozen=True):
+    """An impedance at one frequency of a curve as size and angle; None where it is not finite or not simulated."""
+
+    hz: float
+    exact_ohm: float | None
+    exact_deg: float | None
+    simulated_ohm: float | None
+    simulated_deg: float | None
+
+
 class ImpedanceFacts(Struct, frozen=True):
     """An impedance that the drive or the load sees.
 
-    side: input or output. of: the source, or the output. says: what is in it or left out, by name in left_out.
-    hand_ohm, hand_text: at mid-band by looking in; None and why where no rule gives it. Curves over frequency_hz: size
-    in ohm and angle; None where it is not finite.
+    name: tells it from the others. side: input or output. of: the source, or the output. says: what is in it or left
+    out, by name in left_out. hand_ohm, hand_text: at mid-band by looking in; None where no rule gives it.
     """
 
+    name: str
     side: str
     of: str
     says: str
@@ -654,11 +682,7 @@ class ImpedanceFacts(Struct, frozen=True):
     points: tuple[ImpedancePoint, ...]
     hand_ohm: float | None
     hand_text: str
-    frequency_hz: tuple[float, ...]
-    exact_ohm: tuple[float | None, ...]
-    exact_deg: tuple[float | None, ...]
-    simulated_ohm: tuple[float | None, ...] | None
-    simulated_deg: tuple[float | None, ...] | None
+    curve: tuple[ImpedanceCurvePoint, ...]
 
 
 class AddedPart(Struct, frozen=True):
@@ -1047,6 +1071,7 @@ class Review(Struct, frozen=True):
     loops: tuple[LoopFacts, ...] = ()
     loop_curves: tuple[LoopCurve, ...] = ()
     miller: MillerCurves | None = None
+    inductors: tuple[InductorFacts, ...] = ()
 
 
 DEVICES_SCHEMA = "tauledger.devices/1"

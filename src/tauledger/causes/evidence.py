@@ -12,7 +12,7 @@ from tauledger.devices.family import Device
 from tauledger.devices.parts import Part
 from tauledger.hand.combine import Combined
 from tauledger.hand.estimate import Edge as EdgeName
-from tauledger.hand.estimate import LowerRow, MethodEstimate, SignalNode, StepEstimate
+from tauledger.hand.estimate import InductorRow, LowerRow, MethodEstimate, SignalNode, StepEstimate
 from tauledger.hand.halves import counted
 from tauledger.network.bands import Bands
 from tauledger.network.edges import Edge
@@ -69,6 +69,7 @@ class Evidence(Struct, frozen=True):
     images: Mapping[str, str] = {}
     lines: tuple[Part, ...] = ()
     followed_to_hz: float | None = None
+    inductors: tuple[InductorRow, ...] = ()
 
 
 def move(edge: EdgeEvidence, later: str, earlier: str) -> float | None:
@@ -95,6 +96,15 @@ def interaction_step(edge: EdgeEvidence) -> str:
 def rows_that_count(nodes: tuple[SignalNode, ...]) -> list[SignalNode]:
     """Give the signal nodes that count with a positive time constant (of mirror images one), the longest first."""
     return [row for row in counted(nodes).rows if row.time_constant_s > 0]
+
+
+def rows_of_the_edge(evidence: Evidence) -> list[SignalNode | InductorRow]:
+    """Give the nodes and inductors that count in the upper edge with a positive time constant, the longest first."""
+    rows: list[SignalNode | InductorRow] = [
+        *rows_that_count(evidence.nodes),
+        *(row for row in evidence.inductors if row.in_path),
+    ]
+    return sorted(rows, key=lambda row: -row.time_constant_s)
 
 
 def outward(edge: EdgeEvidence) -> list[complex]:

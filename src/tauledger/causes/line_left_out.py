@@ -2,6 +2,9 @@
 
 from __future__ import annotations
 
+import math
+from collections.abc import Sequence
+
 from tauledger.causes.cause import Cause, Note
 from tauledger.causes.evidence import EdgeEvidence, Evidence, in_hertz
 from tauledger.devices.parts import Part
@@ -11,12 +14,12 @@ from tauledger.record import NamedNumber
 
 
 def line_left_out_above(evidence: Evidence) -> Cause | None:
-    """Lines move f_H. Effect: f_H ÷ f_H with every line as it is at DC."""
+    """Lines move f_H. Effect: f_H ÷ f_H with every line as it is at DC; −1 where there is none then."""
     return _left_out(evidence, evidence.upper)
 
 
 def line_left_out_below(evidence: Evidence) -> Cause | None:
-    """Lines move f_L. Effect as above."""
+    """Lines move f_L. Effect: f_L ÷ f_L with every line as it is at DC."""
     return _left_out(evidence, evidence.lower)
 
 
@@ -29,8 +32,8 @@ def lines_as_at_dc(evidence: Evidence) -> Note | None:
     return Note(
         "lines",
         ", ".join(line.owner for line in evidence.lines),
-        f"{', '.join(in_words(line) for line in evidence.lines)} {'is a line' if one else 'are lines'}: response, band "
-        f"edges and shares are exact; poles, zeros, time constants and figures by hand leave out "
+        f"{in_words(evidence.lines)}: response, band edges and shares are exact; poles, zeros, time constants and "
+        f"figures by hand leave out "
         f"{'its delay and take it' if one else 'their delays and take them'} as at DC, {what}",
     )
 
@@ -48,34 +51,44 @@ def ripple_followed_so_far(evidence: Evidence) -> Note | None:
     )
 
 
-def in_words(line: Part) -> str:
-    """Name a line with what it is: "T1 (75 Ω, 50 ns)", "O1 (75 Ω, 50 ns, 10 Ω along it)", "O2 (1 kΩ and 1 nF)"."""
+def in_words(lines: Sequence[Part]) -> str:
+    """Say which are lines, and what: "T1, O1 are lines (75 Ω, 50 ns; 1 kΩ and 1 nF)"."""
+    names, told = ", ".join(line.owner for line in lines), "; ".join(_what(line) for line in lines)
+    return f"{names} {'is a line' if len(lines) == 1 else 'are lines'} ({told})"
+
+
+def _what(line: Part) -> str:
     ohm, _, farad = series_and_shunt(line)
     if not line.surge_ohm:
-        return f"{line.owner} ({_short(ohm, 'Ω')} and {_short(farad, 'F')})"
+        return f"{_short(ohm, 'Ω')} and {_short(farad, 'F')}"
     along = f", {_short(ohm, 'Ω')} along it" if ohm else ""
-    return f"{line.owner} ({_short(line.surge_ohm, 'Ω')}, {_short(line.value, 's')}{along})"
+    return f"{_short(line.surge_ohm, 'Ω')}, {_short(line.value, 's')}{along}"
 
 
 def _left_out(evidence: Evidence, edge: EdgeEvidence) -> Cause | None:
-    if not evidence.lines or edge.hz is None or edge.at_rest_hz is None:
+    if not evidence.lines or edge.hz is None or (edge.at_rest_hz is None and edge.edge == "f_low"):
         return None
+    rest = edge.at_rest_hz
+    at_rest = f"{edge.quantity} would be {in_hertz(rest)}" if rest is not None else f"there would be no {edge.quantity}"
     of_all = [series_and_shunt(line) for line in evidence.lines]
     farad, henry = sum(c for _, _, c in of_all), sum(h for _, h, _ in of_all)
     names = ", ".join(line.owner for line in evidence.lines)
-    amounts = f"{_short(farad, 'F')} across" + (f" and {_short(henry, 'H')} along" if henry else "")
-    matched = "end a line with its own resistance, or " if henry else ""
-    many = len(evidence.lines) > 1
+    instead = f"put {_short(farad, 'F')} into the circuit, half of it at either end"
+    if henry:
+        lumped = f"{_short(farad, 'F')} across and {_short(henry, 'H')} along"
+        instead = (
+            f"end a line with its own resistance, or where it is short against the wavelength put {lumped} into the "
+            "circuit"
+        )
     return Cause(
         cause="line-left-out",
         quantity=edge.quantity,
-        effect=edge.hz / edge.at_rest_hz - 1.0,
+        effect=edge.hz / (math.inf if rest is None else rest) - 1.0,
         where=names,
-        says=f"{', '.join(in_words(line) for line in evidence.lines)} {'are lines' if many else 'is a line'}: "
-        f"taken as at DC, as on paper, {edge.quantity} would be {in_hertz(edge.at_rest_hz)}; it is {in_hertz(edge.hz)}",
-        instead=f"{matched}where it is short against the wavelength, put {amounts} into the circuit",
+        says=f"{in_words(evidence.lines)}: taken as at DC, as on paper, {at_rest}; it is {in_hertz(edge.hz)}",
+        instead=instead,
         numbers=(
-            NamedNumber(f"{edge.quantity} with lines as at DC", edge.at_rest_hz, "Hz"),
+            *([] if rest is None else [NamedNumber(f"{edge.quantity} with lines as at DC", rest, "Hz")]),
             NamedNumber("C of all lines", farad, "F"),
             NamedNumber("L of all lines", henry, "H"),
         ),

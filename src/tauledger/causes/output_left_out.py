@@ -6,14 +6,14 @@ import math
 
 from tauledger.causes.advice import advice
 from tauledger.causes.cause import Cause
-from tauledger.causes.evidence import Evidence, in_hertz, in_seconds, move, rows_that_count
-from tauledger.hand.estimate import SignalNode
+from tauledger.causes.evidence import Evidence, in_hertz, in_seconds, move, rows_of_the_edge
+from tauledger.hand.estimate import InductorRow, SignalNode
 from tauledger.record import NamedNumber
 
 
 def output_left_out(evidence: Evidence) -> Cause | None:
     """The largest time constant beside the lowest node is the output's. Effect: all nodes ÷ lowest node alone."""
-    rows = rows_that_count(evidence.nodes)
+    rows = rows_of_the_edge(evidence)
     if len(rows) < 2 or not _is_output(rows[1], evidence):
         return None
     return _left_out(evidence, rows, "output-left-out", f"the output node, {rows[1].title}")
@@ -21,13 +21,13 @@ def output_left_out(evidence: Evidence) -> Cause | None:
 
 def other_node_left_out(evidence: Evidence) -> Cause | None:
     """The largest time constant beside the lowest node is at a node inside. Effect: all nodes ÷ lowest node alone."""
-    rows = rows_that_count(evidence.nodes)
+    rows = rows_of_the_edge(evidence)
     if len(rows) < 2 or _is_output(rows[1], evidence):
         return None
     return _left_out(evidence, rows, "other-node-left-out", rows[1].title)
 
 
-def _left_out(evidence: Evidence, rows: list[SignalNode], cause: str, who: str) -> Cause | None:
+def _left_out(evidence: Evidence, rows: list[SignalNode | InductorRow], cause: str, who: str) -> Cause | None:
     effect = move(evidence.upper, "all-nodes", "lowest")
     combined = evidence.upper.combined
     if effect is None or combined is None or combined.lowest is None:
@@ -54,7 +54,9 @@ def _left_out(evidence: Evidence, rows: list[SignalNode], cause: str, who: str) 
     )
 
 
-def _is_output(row: SignalNode, evidence: Evidence) -> bool:
+def _is_output(row: SignalNode | InductorRow, evidence: Evidence) -> bool:
+    if isinstance(row, InductorRow):
+        return False
     port = evidence.bands.network.port
     if port.kind == "current":
         return row.role == "output"

@@ -67,7 +67,12 @@ def _moves_nothing(network: Network, part: Part, at_hz: np.ndarray[tuple[int], n
 def _reads_the_output(network: Network, part: Part) -> bool:
     """Whether this is a controlled voltage source on whose output nothing else stands."""
     port = network.port
-    if part.kind != "voltage gain" or part.label or port.kind != "voltage" or set(part.nodes[:2]) != {port.plus, port.minus}:
+    if (
+        part.kind != "voltage gain"
+        or part.label
+        or port.kind != "voltage"
+        or set(part.nodes[:2]) != {port.plus, port.minus}
+    ):
         return False
     ends = {port.plus, port.minus} - {GROUND}
     return not any(ends & set(other.nodes) for other in network.parts if other is not part)

@@ -8,7 +8,7 @@ from tauledger import __version__
 from tauledger.causes.cause import cause_facts, note_facts
 from tauledger.compose.aids import aid_notes
 from tauledger.compose.helps import helps
-from tauledger.compose.rows import budget_facts, node_rows, part_rows, pole_facts, zero_facts
+from tauledger.compose.rows import budget_facts, inductor_facts, node_rows, part_rows, pole_facts, zero_facts
 from tauledger.compose.setting import cautions, curves, device_facts, drive_facts, output_facts, source_lines, unit_of
 from tauledger.explain import Explanation
 from tauledger.hand.estimate import Edge as EdgeName
@@ -90,6 +90,7 @@ def compose(numbers: Numbers, explanation: Explanation, *, netlist: Netlist | No
         notes=_notes(numbers, explanation, netlist),
         cautions=cautions(numbers),
         helps=helps(numbers),
+        inductors=inductor_facts(explanation),
     )
 
 

@@ -17,6 +17,7 @@ from tauledger.record import (
     Budget,
     CapacitanceTerm,
     EdgePair,
+    InductorFacts,
     LowerBudget,
     NodeRow,
     Owner,
@@ -37,6 +38,25 @@ OWNS_SOMETHING = 0.01
 def node_rows(explanation: Explanation) -> tuple[NodeRow, ...]:
     """Give one row per signal node, those off the path included; none where the hand side is withheld."""
     return tuple(_node_row(node, explanation) for node in (explanation.hand.nodes if explanation.hand else ()))
+
+
+def inductor_facts(explanation: Explanation) -> tuple[InductorFacts, ...]:
+    """Give one row per inductor that is short at mid-band; none where the hand side is withheld."""
+    return tuple(
+        InductorFacts(
+            part=row.part,
+            title=row.title,
+            in_path=row.in_path,
+            henry=row.henry,
+            resistance_hand_ohm=row.resistance.ohm,
+            resistance_exact_ohm=row.resistance_exact_ohm,
+            time_constant_s=row.time_constant_s,
+            time_constant_exact_s=row.time_constant_exact_s,
+            source=row.resistance.source,
+            text=row.resistance.text,
+        )
+        for row in (explanation.hand.inductors if explanation.hand else ())
+    )
 
 
 def part_rows(numbers: Numbers, explanation: Explanation) -> tuple[PartRow, ...]:
@@ -88,6 +108,7 @@ def budget_facts(explanation: Explanation) -> Budget:
     upper = lower = None
     if explanation.open is not None and explanation.hand is not None:
         path = [node.time_constant_s for node in counted(explanation.hand.nodes).rows]
+        path += [row.time_constant_s for row in explanation.hand.inductors if row.in_path]
         upper = UpperBudget(
             explanation.open.sum_s,
             explanation.open.inverse_pole_sum_s,

@@ -126,18 +126,26 @@ def branches(circuit: EquivalentCircuit, node: str, without: frozenset[Element],
 
 
 def _through_transformer(circuit: EquivalentCircuit, node: str, k: int, walk: Walk) -> Branch | None:
-    """Give what lies at the other winding, by the square of the turns: n²·R, or R/n² looking into fewer turns."""
+    """Give a winding as the resistance that it is while the other one has an end at AC ground: n²·R, and what follows.
+
+    R lies at the other winding's live end, n is the number of turns here per turn there.
+    """
     transformer = circuit.transformers[k]
-    assert transformer.live is not None
-    far = next(end for end in transformer.live if end != node)
-    beyond = outside(circuit, far, frozenset({("T", k)}), walk)
-    if math.isinf(beyond.ohm):
+    own, other = transformer.windings_from(node)
+    live = [end for end in other if end != GROUND]
+    if len(live) != 1 or own[0] == own[1]:
+        return None
+    beyond = outside(circuit, live[0], frozenset({("T", k)}), walk)
+    rest = outside(circuit, next(end for end in own if end != node), frozenset({("T", k)}), walk)
+    if math.isinf(beyond.ohm) or math.isinf(rest.ohm):
         return None
     n2 = transformer.turns_into(node) ** 2
     within = beyond.symbol if beyond.terms == 1 else f"({beyond.symbol})"
     symbol = f"{plain(n2)}·{within}" if n2 >= 1.0 else f"{within}/{plain(1.0 / n2)}"
+    if rest.ohm:
+        symbol = f"({symbol} + {rest.symbol})" if rest.terms == 1 else f"({symbol} + ({rest.symbol}))"
     detail = f"{transformer.name}: n² = {plain(max(n2, 1.0 / n2))}"
-    return Branch(transformer.name, through_transformer_ohm(transformer, node, beyond.ohm), symbol, detail)
+    return Branch(transformer.name, through_transformer_ohm(transformer, node, beyond.ohm) + rest.ohm, symbol, detail)
 
 
 class Joint(Struct, frozen=True):

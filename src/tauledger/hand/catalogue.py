@@ -9,6 +9,9 @@ from msgspec import Struct
 
 from tauledger.hand.compensation import FORMULAS
 from tauledger.hand.rules import RULES
+from tauledger.hand.rules.transformer import FORMULA as TRANSFORMER_FORMULA
+from tauledger.hand.rules.transformer import SOURCE as TRANSFORMER_SOURCE
+from tauledger.hand.rules.transformer import VALID as TRANSFORMER_VALID
 
 GRAY = "Gray, Hurst, Lewis and Meyer, Analysis and Design of Analog Integrated Circuits, 5th ed., 2009"
 HAJIMIRI = "Hajimiri, IEEE Trans. Circuits Syst. I 57(6), 2010 (time and transfer constants)"
@@ -64,6 +67,32 @@ LOOPS: tuple[Entry, ...] = (
         "R = R_a·(1 − K_ab) + R_b·(1 − K_ba)",
         "a capacitance between two live nodes; across a common emitter's C_μ it is R_B·(1 + gm·R_C) + R_C",
         f"{GRAY}, sec. 7.3.2",
+    ),
+)
+
+INDUCTORS: tuple[Entry, ...] = (
+    Entry("looking in", "through a transformer", TRANSFORMER_FORMULA, TRANSFORMER_VALID, TRANSFORMER_SOURCE),
+    Entry(
+        "inductors",
+        "transformer drawn out",
+        "leakage L1·(1 − k²), magnetising inductance k²·L1, turns n = √(L2/L1)/k",
+        "two windings of k ≥ 0.9; exact, not an approximation",
+        TRANSFORMER_SOURCE,
+    ),
+    Entry(
+        "inductors",
+        "lower edge",
+        "f = R/(2π·L)",
+        "an inductor that is open at mid-band, as L_m or a choke; R across it, source and load in parallel",
+        TRANSFORMER_SOURCE,
+    ),
+    Entry(
+        "inductors",
+        "upper edge",
+        "τ = L/R, beside R·C in the sums",
+        "an inductor that is short at mid-band, as leakage or a peaking coil; R faces it, source and load in series; "
+        "no node has a pole of its own where a pair of poles becomes complex",
+        HAJIMIRI,
     ),
 )
 
@@ -190,4 +219,4 @@ def entries() -> tuple[Entry, ...]:
     """Give every rule and method, in the order in which a reader needs them."""
     rules = tuple(Entry("looking in", rule.name, rule.formula, rule.valid, rule.source, rule.short) for rule in RULES)
     compensation = tuple(Entry("unity gain", f.name, f.written, f.valid, f.source) for f in FORMULAS)
-    return (*rules, *LOOPS, *CAPACITANCES, *METHODS, *compensation)
+    return (*rules, *INDUCTORS, *LOOPS, *CAPACITANCES, *METHODS, *compensation)

@@ -14,7 +14,7 @@ import numpy as np
 from msgspec import Struct
 from numpy.typing import NDArray
 
-from tauledger.hand.estimate import LowerRow, SignalNode
+from tauledger.hand.estimate import InductorRow, LowerRow, SignalNode
 from tauledger.hand.halves import counted
 from tauledger.network.poles import cancelled_pairs
 from tauledger.network.spectrum import ascending
@@ -99,14 +99,16 @@ class Combined(Struct, frozen=True):
         return abs(math.log(f4 / f3)) + abs(math.log(f5 / f4)) > 1.2 * abs(math.log(f5 / f3)) + 0.05
 
 
-def combine_upper(nodes: Sequence[SignalNode], poles: Complex, zeros: Complex) -> Combined:
-    """Combine the time constants of the signal nodes that count, and the roots of the upper network, into f_H.
+def combine_upper(
+    nodes: Sequence[SignalNode], poles: Complex, zeros: Complex, inductors: Sequence[InductorRow] = ()
+) -> Combined:
+    """Combine the time constants of the nodes and inductors that count, and the roots of the upper network, into f_H.
 
     Of mirror images that carry one signal together, one half is taken.
 
     poles, zeros: of the upper network in rad/s (n,), (m,), both members of every complex pair.
     """
-    rows = counted(nodes).rows
+    rows: list[SignalNode | InductorRow] = [*counted(nodes).rows, *(row for row in inductors if row.in_path)]
     return _combine(
         [node.time_constant_s for node in rows],
         [node.time_constant_exact_s for node in rows],

@@ -111,9 +111,14 @@ class Transformer(Struct, frozen=True):
         same_way = (self.first[1] == GROUND) == (self.second[1] == GROUND)
         return self.turns if same_way else -self.turns
 
+    def windings_from(self, node: str) -> tuple[tuple[str, str], tuple[str, str]]:
+        """Give the winding that has an end at this node, and the other one."""
+        return (self.first, self.second) if node in self.first else (self.second, self.first)
+
     def turns_into(self, node: str) -> float:
-        """Give the turns of the winding at this live end per turn of the other, signed."""
-        return 1.0 / self.ratio if self.live is not None and node == self.live[0] else self.ratio
+        """Give the turns of the winding at this node per turn of the other, signed where both have an end at ground."""
+        ratio = self.turns if self.live is None else self.ratio
+        return 1.0 / ratio if node in self.first else ratio
 
 
 class TerminalAt(Struct, frozen=True):

@@ -207,7 +207,7 @@ def equivalent_circuit(
         resistors_at=adjacency([(r.a, r.b) for r in resistors]),
         cells_at=adjacency([(c.control, c.common, c.output) for c in cells]),
         transformers=transformers,
-        transformers_at=adjacency([t.live or () for t in transformers]),
+        transformers_at=adjacency([tuple(n for n in (*t.first, *t.second) if n != GROUND) for t in transformers]),
     )
 
 

@@ -104,9 +104,9 @@ class SignalNode(Struct, frozen=True):
 
 
 class LowerRow(Struct, frozen=True):
-    """One coupling or bypass capacitor (parallel ones taken together): hand and exact resistance, edge and zero,
-    Hz.
+    """One coupling or bypass capacitor (parallel ones taken together), or one inductor that is open at mid-band.
 
+    Hand and exact resistance across it, edge and zero in Hz. henry: of an inductor, whose farad is 0.
     parts: names of the capacitors taken together. in_path: counts in the hand estimate.
     zero_hz: f_k·H(open)/H(short), the zero it makes alone with the other shorts shorted; 0 for a coupling
     capacitor.
@@ -120,6 +120,23 @@ class LowerRow(Struct, frozen=True):
     edge_hand_hz: float
     edge_exact_hz: float
     zero_hz: float
+    in_path: bool
+    henry: float = 0.0
+
+
+class InductorRow(Struct, frozen=True):
+    """One inductor that is short at mid-band: H, the resistance that faces it, and L/R in s by hand and exact.
+
+    in_path: counts in the hand estimate.
+    """
+
+    part: str
+    title: str
+    henry: float
+    resistance: LookingIn
+    resistance_exact_ohm: float
+    time_constant_s: float
+    time_constant_exact_s: float
     in_path: bool
 
 
@@ -182,3 +199,4 @@ class HandEstimate(Struct, frozen=True):
     sigma: float | None
     hand_f_high_hz: float | None
     hand_f_low_hz: float | None
+    inductors: tuple[InductorRow, ...] = ()

@@ -1,4 +1,4 @@
-"""The lower edge by hand: per coupling or bypass capacitor the resistance that it faces, all other shorts shorted.
+"""The lower edge by hand: what each coupling or bypass capacitor, and each choke, faces, all others as at mid-band.
 
 Source of the short-circuit time constants: Gray, Hurst, Lewis and Meyer, Analysis and Design of Analog Integrated
 Circuits, 5th ed., 2009, sec. 7.4.
@@ -7,39 +7,36 @@ Circuits, 5th ed., 2009, sec. 7.4.
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping, Sequence
+from collections.abc import Sequence
 
 import numpy as np
-from msgspec.structs import replace
 
 from tauledger.circuit import GROUND
 from tauledger.devices.family import Device
 from tauledger.errors import NetworkError
 from tauledger.hand.budget import resistance_across
 from tauledger.hand.combine import Combined
-from tauledger.hand.equivalent import EquivalentCircuit, equivalent_circuit, joined, joined_nodes
+from tauledger.hand.equivalent import EquivalentCircuit, equivalent_circuit, joined
 from tauledger.hand.estimate import LookingIn, LowerRow
 from tauledger.hand.figures import plain
 from tauledger.hand.nodes import node_name, node_title
 from tauledger.network.bands import Bands
-from tauledger.network.lower import ShortConstant, coupling_groups, short_constants
+from tauledger.network.lower import ShortConstant, ShortConstants, short_constants
 from tauledger.network.shares import zero_shares
-from tauledger.network.solve import response
+from tauledger.network.transformers import LEAKAGE, MAGNETISING
 from tauledger.quantity import engineering
 
-WEIGHT_IN_PATH = 0.05
-EDGE_IN_PATH = 0.02
 OWNS = 0.5
-BLOCKS = 1e-6
 ACCEPTED = 0.01
 
 
-def lower_rows(bands: Bands, devices: tuple[Device, ...]) -> tuple[LowerRow, ...]:
-    """Give one row per short capacitor, parallel ones taken together, in the order of the file.
+def lower_rows(
+    bands: Bands, devices: tuple[Device, ...], constants: ShortConstants | None = None
+) -> tuple[LowerRow, ...]:
+    """Give one row per short capacitor, parallel ones taken together, then one per open inductor, in the file's order.
 
-    Hand: the resistance across it by looking-in rules, edge 1/(2π·R·C). zero_hz = f_k·H(open)/H(short) is the zero
-    that it makes alone. A row counts if the gain is at least 5 % lower with the capacitor open, or if its part of Σ
-    |f_k·(1 − H(open)/H(short))| is at least 2 %: supply decoupling, which the signal does not need, does not.
+    constants: of `short_constants`, which says what belongs together, what counts and which zero each makes; here the
+    resistance is added as looking-in rules give it, and with it the edge, 1/(2π·R·C) or R/(2π·L).
     Capacitors with both ends at one node make no row.
     Raises NetworkError where the mid-band circuit has no unique solution.
     """
@@ -49,24 +46,18 @@ def lower_rows(bands: Bands, devices: tuple[Device, ...]) -> tuple[LowerRow, ...
     }
     opens = {p.name for p in network.parts if p.kind in ("capacitance", "transcapacitance")} - shorts
     opens -= bands.gain_setting
-    chokes = {p.name for p in network.parts if p.kind == "inductance" and bands.class_of[p.name] == "open"}
-    direct = _direct_nodes(bands)
-    found: list[tuple[LowerRow, float]] = []
-    for group in coupling_groups(bands):
-        ends = sorted(direct[node] for node in group[0].nodes)
-        if ends[0] == ends[1]:
+    opens |= {p.name for p in network.parts if p.kind == "inductance" and bands.class_of[p.name] == "open"}
+    found: list[LowerRow] = []
+    for constant in (constants or short_constants(bands)).parts:
+        if bands.gain_setting.issuperset(constant.names):
+            found.append(_gain_row(constant))
             continue
-        names = tuple(part.name for part in group)
-        smaller, merged = joined(network, shorts - {*names}, {*names, *opens, *chokes})
+        smaller, merged = joined(network, shorts - {*constant.names}, {*constant.names, *opens})
         circuit = equivalent_circuit(smaller, merged, devices, network, bands.s_mid)
-        a, b = (circuit.at[node] for node in ends)
-        if a == b:
-            continue
-        found.append(_row(bands, circuit, (a, b), names, sum(part.value for part in group)))
-    setting = _setting(bands) if bands.gain_setting else ()
-    scale = sum(abs(weight * row.edge_exact_hz) for row, weight in found)
-    scale += sum(abs(constant.weight * constant.edge_hz) for constant in setting)
-    return (*(_judged(row, weight, scale) for row, weight in found), *map(_gain_row, setting))
+        a, b = (circuit.at.get(node, GROUND) for node in constant.nodes)
+        if a != b:
+            found.append(_row(bands, circuit, (a, b), constant))
+    return tuple(found)
 
 
 def zero_owner(bands: Bands, rows: Sequence[LowerRow], zero: complex) -> LowerRow | None:
@@ -86,34 +77,28 @@ def nearest_zero_owner(bands: Bands, rows: Sequence[LowerRow], combined: Combine
     return zero_owner(bands, rows, complex(zeros[np.argmax(np.abs(zeros))])) if len(zeros) else None
 
 
-def _row(
-    bands: Bands, circuit: EquivalentCircuit, ends: tuple[str, str], names: tuple[str, ...], farad: float
-) -> tuple[LowerRow, float]:
-    """Give the row, not yet judged, and its weight 1 − H(open)/H(short)."""
+def _row(bands: Bands, circuit: EquivalentCircuit, ends: tuple[str, str], constant: ShortConstant) -> LowerRow:
     seen = resistance_across(circuit, *ends)
-    exact = circuit.across(*ends)
-    if circuit.s_mid:
-        exact = _parallel_ohm(circuit, *ends)
-        if abs(seen.ohm - exact) > ACCEPTED * abs(exact):
-            seen = _solved(exact, "the capacitors that set the gain are part of it")
-    edge = _edge(exact, farad)
-    passed = _gain_left(bands, circuit)
-    row = LowerRow(
-        parts=names,
-        title=_title(circuit, ends, passed, bands, names),
-        farad=farad,
+    exact = constant.resistance_ohm
+    if circuit.s_mid and abs(seen.ohm - exact) > ACCEPTED * abs(exact):
+        seen = _solved(exact, "the capacitors that set the gain are part of it")
+    inductive = bands.network.part(constant.names[0]).kind == "inductance"
+    title = _inductor_title(circuit, ends, constant) if inductive else _title(circuit, ends, constant, bands)
+    if not constant.in_path:
+        named, _, how = title.partition(", ")
+        title = f"{named}, decoupling {how.partition(' ')[2]}"
+    return LowerRow(
+        parts=constant.names,
+        title=title,
+        farad=0.0 if inductive else constant.value,
+        henry=constant.value if inductive else 0.0,
         resistance=seen,
         resistance_exact_ohm=exact,
-        edge_hand_hz=_edge(seen.ohm, farad),
-        edge_exact_hz=edge,
-        zero_hz=edge * passed,
-        in_path=True,
+        edge_hand_hz=seen.ohm / (2.0 * math.pi * constant.value) if inductive else _edge(seen.ohm, constant.value),
+        edge_exact_hz=constant.edge_hz,
+        zero_hz=constant.zero_hz,
+        in_path=constant.in_path,
     )
-    return row, 1.0 - passed
-
-
-def _setting(bands: Bands) -> tuple[ShortConstant, ...]:
-    return tuple(row for row in short_constants(bands).parts if bands.gain_setting.issuperset(row.names))
 
 
 def _gain_row(constant: ShortConstant) -> LowerRow:
@@ -139,40 +124,14 @@ def _solved(ohm: float, why: str) -> LookingIn:
     return LookingIn(ohm, "solved", f"R = {plain(ohm)}, solved: {why}", (), "solved")
 
 
-def _parallel_ohm(circuit: EquivalentCircuit, a: str, b: str) -> float:
-    """Give 1/Re(1/Z) in ohm, Z the complex impedance between two nodes at mid-band."""
-    rows = [(circuit.row[node], sign) for node, sign in ((a, 1.0), (b, -1.0)) if node != GROUND]
-    z = sum(si * sj * complex(circuit.whole[i, j]) for i, si in rows for j, sj in rows)
-    siemens = (1.0 / z).real if z else math.inf
-    return 1.0 / siemens if siemens else math.inf
-
-
-def _judged(row: LowerRow, weight: float, scale: float) -> LowerRow:
-    part = abs(weight * row.edge_exact_hz) / scale if scale else 0.0
-    if weight >= WEIGHT_IN_PATH or part >= EDGE_IN_PATH:
-        return row
-    named, _, how = row.title.partition(", ")
-    where = how.partition(" ")[2]
-    return replace(row, title=f"{named}, decoupling {where}", in_path=False)
-
-
-def _gain_left(bands: Bands, circuit: EquivalentCircuit) -> float:
-    """Give H(open)/H(short): the part of the mid-band gain that is left with the capacitor open."""
-    at_hz = bands.midband.frequency_hz if bands.gain_setting else 0.0
-    short = complex(response(bands.upper, np.array([at_hz]))[0])
-    left = float((circuit.response / short).real)
-    return 0.0 if abs(left) < BLOCKS else left
-
-
-def _title(
-    circuit: EquivalentCircuit, ends: tuple[str, str], passed: float, bands: Bands, names: tuple[str, ...]
-) -> str:
+def _title(circuit: EquivalentCircuit, ends: tuple[str, str], constant: ShortConstant, bands: Bands) -> str:
     """Say "C2, bypass at emitter of Q1 (e)", "C1, coupling into base of Q1 (b)": into the end that rests when open.
 
     A capacitor between two live nodes that signal passes without it, as in series with a feedback resistor, is neither.
 
     Where other shorts join the capacitor with a better known node, its own node is named: it is soldered there.
     """
+    names, passed = constant.names, constant.zero_hz
     live = [node for node in ends if node != GROUND]
     still = min(live, key=lambda node: abs(circuit.voltage[circuit.row[node]]))
     own = [node for node in bands.network.part(names[0]).nodes if circuit.at[node] == still]
@@ -183,12 +142,14 @@ def _title(
     return f"{' ‖ '.join(names)}, {'coupling into' if passed == 0.0 else 'bypass at'} {title}"
 
 
-def _direct_nodes(bands: Bands) -> Mapping[str, str]:
-    """Give every node's group with nothing joined but sources and short inductors."""
-    network = bands.network
-    joins = {p.name for p in network.parts if p.kind == "inductance" and bands.class_of[p.name] != "open"}
-    joins |= {p.name for p in network.parts if p.kind == "voltage source" and not network.amplitude(p)}
-    return joined_nodes(network, joins)
+def _inductor_title(circuit: EquivalentCircuit, ends: tuple[str, str], constant: ShortConstant) -> str:
+    """Say "LC, choke at collector of Q1 (c)", "L1.l_m, magnetising inductance at p"."""
+    owner, _, label = constant.names[0].partition(".")
+    what = "magnetising inductance" if label == MAGNETISING else "leakage inductance" if label == LEAKAGE else "choke"
+    live = [node for node in ends if node != GROUND]
+    still = max(live, key=lambda node: abs(circuit.voltage[circuit.row[node]]))
+    named = constant.names[0] if label else owner
+    return f"{named}, {what} at {node_title(circuit, still)}"
 
 
 def _edge(ohm: float, farad: float) -> float:

@@ -13,7 +13,7 @@ from collections.abc import Callable, Iterable, Sequence
 import numpy as np
 
 from tauledger.hand.combine import Combined
-from tauledger.hand.estimate import Edge, LowerRow, SignalNode, StepEstimate
+from tauledger.hand.estimate import Edge, InductorRow, LowerRow, SignalNode, StepEstimate
 from tauledger.hand.halves import counted
 from tauledger.quantity import engineering, percent
 
@@ -42,10 +42,12 @@ def upper_steps(
     full_hz: float | None,
     stable: bool = True,
     lines: tuple[str, float | None] | None = None,
+    inductors: Sequence[InductorRow] = (),
 ) -> tuple[StepEstimate, ...]:
     """Give the steps from the lowest signal node alone to f_H of the full network.
 
-    combined: of `combine_upper` with the same nodes. full_hz: f_H of the full network, None where there is none.
+    combined: of `combine_upper` with the same nodes and inductors. full_hz: f_H of the full network, None where
+    there is none.
     stable: no pole of the full network lies in the right half plane. lines: why lines move it further, and f_H with
     them as they are; full_hz has them as at DC.
     Empty where the network is unstable or no pole lies between input and output.
@@ -53,7 +55,9 @@ def upper_steps(
     """
     if not (stable and combined.stable) or len(combined.roots.poles) == 0:
         return ()
-    rows, parts = list(counted(nodes).rows), counted(nodes).parts
+    rows: list[SignalNode | InductorRow] = [*counted(nodes).rows, *(row for row in inductors if row.in_path)]
+    rows.sort(key=lambda row: -row.time_constant_s)
+    parts = counted(nodes).parts
     reasons = {
         "lowest": _lowest_node(rows),
         "all-nodes": _other_nodes(rows) + ("" if parts == 1 else " in each half"),
@@ -154,15 +158,18 @@ def _say_what_cancels(steps: tuple[StepEstimate, ...]) -> tuple[StepEstimate, ..
     return tuple(told)
 
 
-def _lowest_node(rows: list[SignalNode]) -> str:
+def _lowest_node(rows: list[SignalNode | InductorRow]) -> str:
     if not rows or rows[0].time_constant_s <= 0:
         return "no signal node with a positive time constant counts"
     row = rows[0]
+    if isinstance(row, InductorRow):
+        quotient = f"{_henry(row.henry)} / {_ohm(row.resistance.ohm)} = {_seconds(row.time_constant_s)}"
+        return f"{row.title} alone: {quotient}"
     product = f"{_ohm(row.resistance_hand_ohm)} · {_farad(row.capacitance_f)} = {_seconds(row.time_constant_s)}"
     return f"{row.title} alone: {product}"
 
 
-def _other_nodes(rows: list[SignalNode]) -> str:
+def _other_nodes(rows: list[SignalNode | InductorRow]) -> str:
     others = [row for row in rows[1:] if row.time_constant_s > 0]
     negative = [row for row in rows if row.time_constant_s < 0]
     total = math.fsum(row.time_constant_s for row in rows if row.time_constant_s > 0)
@@ -176,7 +183,7 @@ def _other_nodes(rows: list[SignalNode]) -> str:
     return f"{' and '.join(told)} of {_seconds(total)}{more}{left_out}"
 
 
-def _exact_nodes(rows: list[SignalNode]) -> str:
+def _exact_nodes(rows: list[SignalNode | InductorRow]) -> str:
     total = math.fsum(abs(row.time_constant_exact_s) for row in rows)
     worst = max(rows, key=lambda row: abs(row.time_constant_s - row.time_constant_exact_s), default=None)
     if worst is None or abs(worst.time_constant_s - worst.time_constant_exact_s) <= SAME * total:
@@ -193,6 +200,9 @@ def _highest_capacitor(rows: list[LowerRow]) -> str:
     if not rows:
         return "no coupling or bypass capacitor counts"
     row = rows[0]
+    if row.henry:
+        quotient = f"{_ohm(row.resistance.ohm)} / {_henry(row.henry)}"
+        return f"{row.title} alone: {quotient} gives {_hz(row.edge_hand_hz)}"
     return f"{row.title} alone: {_ohm(row.resistance.ohm)} · {_farad(row.farad)} gives {_hz(row.edge_hand_hz)}"
 
 
@@ -293,6 +303,10 @@ def _seconds(value: float) -> str:
 
 def _ohm(value: float) -> str:
     return engineering(value, "Ω", 3)
+
+
+def _henry(value: float) -> str:
+    return engineering(value, "H", 3)
 
 
 def _farad(value: float) -> str:

@@ -24,6 +24,7 @@ from tauledger.network.assemble import Network, incidence
 from tauledger.network.bands import BandClass, Bands, joined_nodes, lower_nodes, midband_network, midband_nodes
 from tauledger.network.constants import inverse
 from tauledger.network.gain_setting import impedance_below
+from tauledger.network.merge import passes
 from tauledger.network.reactances import reactances
 from tauledger.network.spectrum import pole_frequencies
 
@@ -79,7 +80,7 @@ def short_constants(bands: Bands) -> ShortConstants:
         if part.kind == "inductance" and bands.class_of[part.name] == "open" and part.name not in bands.aids
     ]
     facts = [_alone(network, bands.class_of, group, gain, s) for group in groups]
-    setting = parallel(network, [part for part in network.parts if part.name in bands.gain_setting])
+    setting = parallel(bands, [part for part in network.parts if part.name in bands.gain_setting])
     if setting:
         facts += _setting(bands, setting, gain)
         groups += setting
@@ -115,12 +116,14 @@ def coupling_groups(bands: Bands) -> list[tuple[Part, ...]]:
         and bands.class_of[part.name] == "short"
         and part.name not in bands.aids
     ]
-    return parallel(bands.network, shorts)
+    return parallel(bands, shorts)
 
 
-def parallel(network: Network, shorts: list[Part]) -> list[tuple[Part, ...]]:
-    """Group capacitors whose ends are the same once undriven voltage sources are taken as the wires that they are."""
+def parallel(bands: Bands, shorts: list[Part]) -> list[tuple[Part, ...]]:
+    """Group capacitors whose ends are the same once undriven voltage sources and short inductors are taken as wires."""
+    network = bands.network
     wires = [part for part in network.parts if part.kind == "voltage source" and network.amplitude(part) == 0.0]
+    wires += [part for part in network.parts if passes(network, part) and bands.class_of[part.name] != "open"]
     tied = joined_nodes(network, wires)
     groups: dict[frozenset[str], list[Part]] = {}
     for part in shorts:

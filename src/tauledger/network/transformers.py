@@ -9,12 +9,13 @@ Source: Terman, "Radio Engineers' Handbook", 1943, section 2 (equivalent circuit
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Collection, Iterable
 
-from tauledger.circuit import fold
+from tauledger.circuit import GROUND, fold
 from tauledger.devices.family import inner_node
 from tauledger.devices.parts import Part, current_gain, inductance, voltage_gain
 from tauledger.network.assemble import Network, assemble
+from tauledger.network.merge import joined_nodes
 
 # Below, as between two tuned circuits, nobody thinks in leakage and turns.
 CLOSE = 0.9
@@ -32,8 +33,10 @@ def drawn_out(network: Network) -> Network:
         return network
     gone = {name for _, _, names in pairs for name in names}
     kept = [part for part in network.parts if part.name not in gone]
+    sources = [part for part in network.parts if part.kind == "voltage source"]
+    rest = {node for node, root in joined_nodes(network, sources).items() if root == GROUND}
     for coupling, ends, _ in pairs:
-        kept += _drawn(coupling, *ends)
+        kept += _drawn(coupling, *ends, rest)
     return assemble(tuple(kept), network.port, network.amplitudes)
 
 
@@ -58,8 +61,11 @@ def _pairs(network: Network) -> list[tuple[Part, tuple[Part, Part], tuple[str, .
     return found
 
 
-def _drawn(coupling: Part, one: Part, two: Part) -> Iterable[Part]:
+def _drawn(coupling: Part, one: Part, two: Part, rest: Collection[str]) -> Iterable[Part]:
+    """Draw the leakage at that end of the first winding which no source holds."""
     (a, b), (c, d) = one.nodes, two.nodes
+    if a in rest and b not in rest:
+        (a, b), (c, d) = (b, a), (d, c)
     k2 = coupling.value**2 / (one.value * two.value)
     n = two.value / coupling.value
     behind = a

@@ -8,15 +8,12 @@ from tauledger.report.steps import methods, steps_in_line
 from tauledger.report.wording import SOLVED, fraction, move, nominal, number, part_title, part_unit
 
 _ROWS = 6
+_KLASSES = {"capacitance": ("short", "gain"), "inductance": ("open",)}
 
 
 def lower_edge(review: Review, *, verbose: bool = False) -> Section:
     """Give R, edge, zero, share and what 10 % less gives, for every capacitor in the path that is no open."""
-    short = [
-        part
-        for part in review.parts
-        if part.klass in ("short", "gain") and part.kind in ("capacitance", "inductance") and not part.aid
-    ]
+    short = [part for part in review.parts if not part.aid and part.klass in _KLASSES.get(part.kind, ())]
     with_edge = [part for part in short if part.in_path and part.edge_hz is not None]
     rows = in_parallel(sorted(with_edge, key=lambda part: (-(part.edge_hz or 0.0), -part.value)))
     blocks: list[Block] = []
@@ -65,13 +62,12 @@ def _row(group: list[PartRow], f_low: float | None) -> Row:
     change = f" ({move(less / f_low - 1.0)})" if less is not None and f_low else ""
     shares = [one.share.f_low for one in group if one.share.f_low is not None]
     names = " ‖ ".join(part_title(one.name, one.owner) for one in group)
-    ends = " to ".join("ground" if node == "0" else node for node in part.nodes)
     hand = part.resistance_hand_ohm
     resistance = number(part.resistance_exact_ohm, "Ω") + SOLVED if hand is None else number(hand, "Ω")
     zero = "at DC" if part.zero_hz == 0.0 else number(part.zero_hz, "Hz", 3)
     return Row(
         (
-            f"{names}, {ends}",
+            names + ends(part),
             nominal(sum(one.value for one in group), part_unit(part.kind)),
             resistance,
             number(part.edge_hz, "Hz"),
@@ -80,6 +76,13 @@ def _row(group: list[PartRow], f_low: float | None) -> Row:
             number(less, "Hz") + change,
         )
     )
+
+
+def ends(part: PartRow) -> str:
+    """Say where a part stands, ", e to ground"; nothing of one that reaches inside a transformer."""
+    if any("'" in node for node in part.nodes):
+        return ""
+    return f", {' to '.join('ground' if node == '0' else node for node in part.nodes)}"
 
 
 def _sums(budget: LowerBudget) -> str:

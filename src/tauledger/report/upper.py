@@ -5,7 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Mapping
 
-from tauledger.record import CapacitanceTerm, NodeRow, PartRow, Review, UpperBudget, Working
+from tauledger.record import CapacitanceTerm, InductorFacts, NodeRow, PartRow, Review, UpperBudget, Working
 from tauledger.report.layout import Block, Prose, Row, Section, Table
 from tauledger.report.wording import (
     LOOP,
@@ -17,6 +17,7 @@ from tauledger.report.wording import (
     move,
     number,
     part_titles,
+    retitled,
     share,
 )
 from tauledger.report.working import node_title, workings
@@ -33,7 +34,7 @@ _SAME_OHM = 0.005
 
 def upper_budget(review: Review, *, verbose: bool = False) -> Section:
     """Give per signal node R, C, R·C by hand and exact, and what 1 pF more costs; below it its capacitances."""
-    if not review.nodes:
+    if not any(node.capacitance_f for node in review.nodes):
         return Section(())
     titles = part_titles(review.parts)
     first = [node for node in review.nodes if not node.second]
@@ -49,10 +50,12 @@ def upper_budget(review: Review, *, verbose: bool = False) -> Section:
         rows.append(_node_row(node, f_high, probe))
         if node.working:
             rows.extend(_term_rows(node, node.working, titles, least=0.0 if verbose else _WORTH_A_ROW * _whole(review)))
+    coils = [row for row in review.inductors if verbose or (row.in_path and _coil_matters(row, review))]
+    rows += [_coil_row(row, review) for row in coils]
     title = f"UPPER EDGE f_H, {len(shown)} of {len(first)} nodes" if hidden else "UPPER EDGE f_H, by node"
     head = (title, "R", "C", "R·C hand", "exact", f"+{number(probe, 'F', 1)}")
     blocks: list[Block] = [Table("lrrrrr", head, tuple(rows))]
-    if any(_mark(node) == SOLVED for node in shown):
+    if any(_mark(node) == SOLVED for node in shown) or any(row.source == "solved" for row in coils):
         blocks.append(Prose("solved exactly: none of the rules fits this node", lead=f"  {SOLVED} "))
     if any(_mark(node) == LOOP for node in shown):
         blocks.append(Prose(by_loop(review), lead=f"  {LOOP} "))
@@ -96,7 +99,8 @@ def _node_matters(node: NodeRow, review: Review) -> bool:
 
 def _whole(review: Review) -> float:
     """Give the sum of the time constants that count, in s."""
-    return sum(abs(row.time_constant_s or 0.0) for row in review.nodes if row.in_path and not row.second)
+    nodes = sum(abs(row.time_constant_s or 0.0) for row in review.nodes if row.in_path and not row.second)
+    return nodes + sum(row.time_constant_s for row in review.inductors if row.in_path)
 
 
 def _probe(nodes: list[NodeRow], f_high: float | None) -> float:
@@ -121,6 +125,24 @@ def _node_row(node: NodeRow, f_high: float | None, probe: float) -> Row:
             number(node.time_constant_s, "s"),
             number(node.time_constant_exact_s, "s"),
             move(cost * probe / f_high) if cost is not None and f_high else NO_NUMBER,
+        )
+    )
+
+
+def _coil_matters(row: InductorFacts, review: Review) -> bool:
+    return abs(row.time_constant_s) >= _MATTERS * _whole(review)
+
+
+def _coil_row(row: InductorFacts, review: Review) -> Row:
+    """Write an inductor's L/R in the columns of R·C: its henry stands where a capacitance would."""
+    return Row(
+        (
+            retitled(row.title, review.parts),
+            number(row.resistance_hand_ohm, "Ω") + (SOLVED if row.source == "solved" else ""),
+            number(row.henry, "H"),
+            number(row.time_constant_s, "s"),
+            number(row.time_constant_exact_s, "s"),
+            "",
         )
     )
 

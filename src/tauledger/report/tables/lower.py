@@ -3,15 +3,22 @@
 from __future__ import annotations
 
 from tauledger.record import PartRow, Review
-from tauledger.report.lower import in_parallel
+from tauledger.report.lower import ends, in_parallel
 from tauledger.report.tables.grid import Grid, GridRow, columns
 from tauledger.report.wording import NO_NUMBER, SOLVED, amount, fraction, move, nominal, number, part_title, part_unit
 
 
 def lower_parts(review: Review) -> tuple[PartRow, ...]:
-    """Give the parts in the signal path that are short at mid-band or set its gain, highest edge first."""
+    """Give the parts in the path that hold the signal back at low frequencies, highest edge first.
+
+    Capacitors that are short at mid-band or set its gain, and inductors that are open there.
+    """
     rows = [
-        part for part in review.parts if part.klass in ("short", "gain") and part.in_path and part.edge_hz is not None
+        part
+        for part in review.parts
+        if part.klass in (("open",) if part.kind == "inductance" else ("short", "gain"))
+        and part.in_path
+        and part.edge_hz is not None
     ]
     return tuple(sorted(rows, key=lambda part: -(part.edge_hz or 0.0)))
 
@@ -26,11 +33,10 @@ def lower_edge(review: Review) -> Grid:
         less = part.ten_percent_less.f_low_hz
         value = amount(part) if len(group) == 1 else nominal(sum(one.value for one in group), part_unit(part.kind))
         shares = [one.share.f_low for one in group if one.share.f_low is not None]
-        ends = " to ".join("ground" if node == "0" else node for node in part.nodes)
         rows.append(
             GridRow(
                 (
-                    f"{' ‖ '.join(part_title(one.name, one.owner) for one in group)}, {ends}",
+                    f"{' ‖ '.join(part_title(one.name, one.owner) for one in group)}{ends(part)}",
                     value,
                     SOLVED if part.resistance_hand_ohm is None else number(part.resistance_hand_ohm, "Ω"),
                     number(part.resistance_exact_ohm, "Ω"),
@@ -44,7 +50,7 @@ def lower_edge(review: Review) -> Grid:
             )
         )
     heads = columns(
-        "Capacitor",
+        "Capacitor or inductor" if any(part.kind == "inductance" for part in lower_parts(review)) else "Capacitor",
         "value",
         "R by hand",
         "R exact",

@@ -6,7 +6,7 @@ import math
 import re
 from collections.abc import Iterable, Mapping
 
-from tauledger.record import CapacitanceTerm, NodeRow, PartRow, ResistanceTerm, Review, WorkingLine
+from tauledger.record import CapacitanceTerm, InductorFacts, NodeRow, PartRow, ResistanceTerm, Review, WorkingLine
 from tauledger.report.tables.grid import Column, Grid, GridRow, columns
 from tauledger.report.wording import (
     LOOP,
@@ -19,6 +19,7 @@ from tauledger.report.wording import (
     number,
     part_title,
     part_titles,
+    retitled,
     share,
 )
 from tauledger.report.working import node_title
@@ -38,7 +39,8 @@ def whole_s(review: Review) -> float:
     upper = review.budget.upper
     if upper is not None and upper.path_sum_s:
         return upper.path_sum_s
-    return math.fsum(node.time_constant_s or 0.0 for node in counted(review))
+    coils = math.fsum(row.time_constant_s for row in review.inductors if row.in_path)
+    return coils + math.fsum(node.time_constant_s or 0.0 for node in counted(review))
 
 
 def counted(review: Review) -> list[NodeRow]:
@@ -57,6 +59,7 @@ def budget(review: Review) -> Grid:
     """Give per node that counts R, C and R·C by hand and exact with its share of the sum, and its capacitances."""
     nodes = counting_nodes(review)
     rows = _node_rows(nodes, review)
+    rows += [_coil_row(row, review) for row in review.inductors if row.in_path]
     sums = review.budget.upper
     others = len(counted(review)) - len(nodes)
     if sums is not None and sums.path_sum_s is not None:
@@ -277,7 +280,23 @@ def _term_row(term: CapacitanceTerm, node: NodeRow, titles: Mapping[str, str], w
 
 
 def _exact_sum(review: Review) -> str:
-    return number(math.fsum(node.time_constant_exact_s or 0.0 for node in counted(review)), "s")
+    coils = math.fsum(row.time_constant_exact_s for row in review.inductors if row.in_path)
+    return number(coils + math.fsum(node.time_constant_exact_s or 0.0 for node in counted(review)), "s")
+
+
+def _coil_row(row: InductorFacts, review: Review) -> GridRow:
+    """Write an inductor's L/R in the columns of R·C: its henry stands where a capacitance would."""
+    cells = (
+        retitled(row.title, review.parts),
+        number(row.resistance_hand_ohm, "Ω") + (f" {SOLVED}" if row.source == "solved" else ""),
+        number(row.resistance_exact_ohm, "Ω"),
+        number(row.henry, "H"),
+        number(row.time_constant_s, "s"),
+        number(row.time_constant_exact_s, "s"),
+        _of(row.time_constant_s, whole_s(review)),
+        "",
+    )
+    return GridRow(cells, part=row.part)
 
 
 def _of(seconds: float | None, whole: float) -> str:
