@@ -21,6 +21,7 @@ from tauledger.explain import NOTHING
 from tauledger.netlist import read
 from tauledger.network.agreement import Agreement
 from tauledger.network.assemble import Network
+from tauledger.network.poles import find_poles
 from tauledger.numbers import solve
 from tauledger.pipeline import review, review_network
 from tauledger.record import Review, UnityElement, UnityFacts
@@ -223,6 +224,27 @@ def test_a_network_alone_has_the_exact_figures_and_differences_against_them() ->
     assert facts.difference == pytest.approx((facts.hand_hz or 0.0) / (facts.exact_hz or 1.0) - 1.0)
     assert [one.name for one in facts.elements] == ["M1.gm", "C1"]
     assert facts.elements[1].f_unity == pytest.approx(1.0, abs=1e-4)
+
+
+def test_a_circuit_with_a_pole_in_the_right_half_plane_has_no_margin_to_speak_of() -> None:
+    """Two inverting stages, the output fed back to the input with the sign that helps."""
+    network = Network.from_parts(
+        [
+            voltage_source("VS", "in", "0", 1.0),
+            resistance("RS", "in", "a", 1e4),
+            capacitance("CA", "a", "0", 1e-12),
+            transconductance("M1", ("y", "0"), ("a", "0"), 2e-3, label="gm"),
+            resistance("R1", "y", "0", 1e4),
+            capacitance("C1", "y", "0", 1e-12),
+            transconductance("M2", ("out", "0"), ("y", "0"), 2e-3, label="gm"),
+            resistance("R2", "out", "0", 1e4),
+            capacitance("C2", "out", "0", 1e-12),
+            resistance("RF", "out", "a", 1e5),
+        ],
+        output=Port("out"),
+    )
+    assert not find_poles(network).stable
+    assert review_network(network, asked=Asked(unity=True)).f_unity is None
 
 
 def test_a_network_that_is_not_trusted_leaves_the_figures_of_ngspice_alone(engine: Engine) -> None:

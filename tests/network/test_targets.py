@@ -6,7 +6,8 @@ import math
 
 import numpy as np
 import pytest
-from hypothesis import given, settings
+from hypothesis import assume, given, settings
+from msgspec.structs import replace
 
 import amplifiers
 import boards
@@ -35,6 +36,7 @@ from tauledger.network.targets import (
     gain_moves,
     log_sensitivity,
     peaking_moves,
+    unity_identities,
     unity_moves,
     with_capacitance,
 )
@@ -165,6 +167,24 @@ def test_all_capacitances_together_move_f_u_as_its_inverse_and_leave_both_margin
     kinds = {part.name: part.kind for part in network.parts}
     sums = np.sum([moved(found[name]) for name, kind in kinds.items() if kind == "capacitance"], axis=0)
     assert sums == pytest.approx([-1.0, 0.0, 0.0, -1.0], abs=1e-6)
+
+
+@settings(max_examples=20, deadline=None, derandomize=True)
+@given(networks())
+def test_the_shares_of_f_u_add_to_one_in_any_network(network: Network) -> None:
+    midband = find_midband(network)
+    unity = find_unity(network, midband)
+    assume(unity is not None)
+    assert unity is not None
+    assert all(identity.holds for identity in unity_identities(network, unity_moves(network, midband, unity)))
+
+
+def test_a_share_that_is_left_out_breaks_the_identity() -> None:
+    network = two_stages()
+    midband, unity = unity_of(network)
+    moves = unity_moves(network, midband, unity)
+    broken = replace(moves, parts={**moves.parts, "CC": replace(moves.parts["CC"], f_unity=0.0)})
+    assert not all(identity.holds for identity in unity_identities(network, broken))
 
 
 def test_controlled_sources_of_every_kind_are_taken_along() -> None:

@@ -8,8 +8,16 @@ from msgspec import Struct
 from msgspec.structs import replace
 
 from tauledger.answers.elements import Element, elements
+from tauledger.network.identities import check
 from tauledger.network.recompute import scaled
-from tauledger.network.targets import PERCENT, UnityMove, follow_unity, unity_moves, with_capacitance
+from tauledger.network.targets import (
+    PERCENT,
+    UnityMove,
+    follow_unity,
+    unity_identities,
+    unity_moves,
+    with_capacitance,
+)
 from tauledger.network.unity import Unity
 from tauledger.numbers import Numbers
 from tauledger.record import Review, UnityElement, UnityNode
@@ -35,10 +43,11 @@ def unity_shares(found: Review, numbers: Numbers, unity: Unity) -> UnityShares:
     """Give the elements of which 10 % less, and the nodes where 1 pF, moves f_u by 0.5 % or the margin by 0.1°.
 
     found: the review so far, for the names of its signal nodes.
-    Raises NetworkError where the network has no unique solution.
+    Raises NetworkError where the network has no unique solution, and where an identity does not hold.
     """
     high = numbers.edges.f_high
     moves = unity_moves(numbers.network, numbers.midband, unity, high.hz if high is not None else None)
+    check(unity_identities(numbers.network, moves))
     return UnityShares(_elements(numbers, unity, moves.parts), _nodes(found, numbers, unity, moves.nodes))
 
 

@@ -19,9 +19,10 @@ from msgspec import Struct
 from tauledger.devices.parts import Part, capacitance
 from tauledger.network.assemble import Network, assemble, incidence
 from tauledger.network.edges import at_same_frequency
+from tauledger.network.identities import ON_THE_AXIS, Identity
 from tauledger.network.lines import line_moments
 from tauledger.network.midband import MidBand
-from tauledger.network.reactances import moments, reactances, together
+from tauledger.network.reactances import REACTIVE, moments, reactances, together
 from tauledger.network.solve import Complex, Real, log_slope, on_axis, response, solve
 from tauledger.network.unity import HALF_TURN_DEG, Unity, find_unity
 
@@ -135,6 +136,15 @@ def unity_moves(network: Network, midband: MidBand, unity: Unity, f_high_hz: flo
         parts={name: move(changed) for name, changed in found.parts.items()},
         nodes={name: move(changed) for name, changed in found.nodes.items()},
     )
+
+
+def unity_identities(network: Network, moves: UnityMoves) -> tuple[Identity, ...]:
+    """Σ ∂ln f_u over all that is reactive = −1, for scaling all of it scales frequency; none beside plain delays."""
+    if network.delayed:
+        return ()
+    reactive = [moves.parts[part.name].f_unity for part in network.parts if part.kind in (*REACTIVE, "line")]
+    scale = 1.0 + sum(abs(move) for move in reactive)
+    return (Identity("shares of f_u add to 1", -sum(reactive), 1.0, ON_THE_AXIS, scale),)
 
 
 def gain_moves(network: Network, midband: MidBand, hz: float) -> Mapping[str, GainMove]:
