@@ -104,6 +104,8 @@ def board(
             model = next((known[fold(word)] for word in plain[2:] if fold(word) in known), "")
             values = [word for word in plain[2:] if fold(word) not in known]
             parameters = [*(("value", number(word)) for word in values), *parameters]
+        elif letter == "T":
+            ends = plain
         else:
             ends, model = plain[:-1], plain[-1]
             if letter == "W":
