@@ -89,7 +89,8 @@ def test_a_review_is_the_page_on_stdout_and_nothing_else(run: Run, asked: dict[s
 
 def test_options_reach_the_review(run: Run, asked: dict[str, Any]) -> None:
     code, _, _ = run(
-        *("review", "board.cir", "--input", "VS", "--output", "v(a,b)", "--midband", "2.2meg"),
+        *("review", "board.cir", "--input", "VS", "--output", "v(a,b)", "--output", "c", "--midband", "2.2meg"),
+        *("--add", "out=10meg,12p", "--impedance", "--swing", "3"),
         *("--timeout", "5", "--library", "/opt/libngspice.so"),
         *("--set", "RL=2k", "--set", "nsmall.bf=100", "--allow-include", "../parts", "--fold", "XU1", "--at", "10meg"),
     )
@@ -97,7 +98,7 @@ def test_options_reach_the_review(run: Run, asked: dict[str, Any]) -> None:
     assert asked == {
         "path": "board.cir",
         "fold": ("XU1",),
-        "asked": Asked(at_hz=(10e6,)),
+        "asked": Asked(at_hz=(10e6,), outputs=("c",), impedances=True, swing_v=3.0),
         "drive": "VS",
         "output": "v(a,b)",
         "midband_hz": 2.2e6,
@@ -105,6 +106,7 @@ def test_options_reach_the_review(run: Run, asked: dict[str, Any]) -> None:
         "library": "/opt/libngspice.so",
         "page": None,
         "settings": ("RL=2k", "nsmall.bf=100"),
+        "add": ("out=10meg,12p",),
         "allow": ("../parts",),
     }
 

@@ -928,6 +928,15 @@ class LoopStageFacts(Struct, frozen=True):
     exact: float
 
 
+class LoopNodeFacts(Struct, frozen=True):
+    """One node of the opened loop by hand: R in Ω, C in F, R·C in s."""
+
+    node: str
+    ohm: float
+    farad: float
+    time_constant_s: float
+
+
 class LoopEstimate(Struct, frozen=True):
     """What a loop says of f_H by one method; difference: hz/simulated − 1 (against exact without simulation)."""
 
@@ -956,6 +965,7 @@ class LoopFacts(Struct, frozen=True):
     source: for which H = ideal_gain·T/(1 + T) + feedthrough/(1 + T) = closed_gain at at_hz, with source_return_ratio
     for T; identity_error: largest relative error of that against the network. noise_gain: 1/β of an amplifier.
     noise_gain_edge_hz: its gain-bandwidth product over that. hand_return_ratio: hand_siemens·Π hand of hand_stages.
+    hand_open_edge_hz: 1/(2π·Σ R·C) of the opened loop, hand_open_nodes those that take 1 % of it or more.
     """
 
     loop: str
@@ -992,6 +1002,8 @@ class LoopFacts(Struct, frozen=True):
     hand_stages: tuple[LoopStageFacts, ...] = ()
     hand_ideal_gain: float | None = None
     hand_ideal_text: str = ""
+    hand_open_edge_hz: float | None = None
+    hand_open_nodes: tuple[LoopNodeFacts, ...] = ()
     estimates: tuple[LoopEstimate, ...] = ()
     why: tuple[str, ...] = ()
     says: tuple[str, ...] = ()

@@ -56,6 +56,18 @@ def answer(found: Review, subject: Subject, asked: Asked) -> Review:
         from tauledger.answers.miller import miller_curves
 
         found = replace(found, miller=miller_curves(subject))
+    if len(found.drive) == 2 and subject.numbers.trusted:
+        from tauledger.answers.modes import mode_facts
+
+        found = replace(found, modes=mode_facts(found, subject))
+    if asked.outputs and subject.numbers.trusted:
+        from tauledger.answers.outputs import output_rows
+
+        found = replace(found, outputs=output_rows(subject, asked.outputs))
+    if asked.impedances and subject.numbers.trusted:
+        from tauledger.answers.impedances import impedances
+
+        found = replace(found, impedances=impedances(subject))
     if subject.explanation.hand is not None:
         from tauledger.answers.large_signal import with_large_signal
 

@@ -21,6 +21,7 @@ _OPTIONS = (
     click.option("--at", "at", metavar="HZ", multiple=True, help="Gain and phase at HZ, e.g. 10meg; repeatable."),
     click.option("--unity", is_flag=True, help="Show who sets unity gain and phase margin, whatever the circuit."),
     click.option("--peaking", is_flag=True, help="Show who makes the peaking."),
+    click.option("--impedance", is_flag=True, help="Input and output impedance, at mid-band and at f_H."),
     click.option("--swing", metavar="V", help="Peak at the output for the large-signal figures, e.g. 3; else 1 V."),
     click.option(
         "--loop", "loop", metavar="NAME", multiple=True, help="Return ratio at M6, R3, E2 or Q1.base; repeatable."
@@ -43,6 +44,7 @@ def questions(command: Command) -> Command:
         at: tuple[str, ...],
         unity: bool,
         peaking: bool,
+        impedance: bool,
         swing: str | None,
         loop: tuple[str, ...],
         curve: str | None,
@@ -56,6 +58,7 @@ def questions(command: Command) -> Command:
             at_hz=tuple(hertz("--at", given) for given in at),
             unity=unity,
             peaking=peaking,
+            impedances=impedance,
             swing_v=None if swing is None else _volt(swing),
             curve=None if curve is None else _measured(curve),
             loops=loop,

@@ -28,7 +28,9 @@ _EXIT_CODES = (
 
 @click.command("review", short_help="Review one netlist, or several.", epilog=_EXIT_CODES)
 @click.argument("netlists", metavar="NETLIST...", nargs=-1, required=True)
-@click.option("--input", "drive", metavar="SRC", help="Drive source SRC with 1, all others with 0.")
+@click.option(
+    "--input", "drive", metavar="SRC", help="Drive source SRC with 1, or a pair VP,VN with ½ and -½; others not."
+)
 @click.option(
     "--output",
     "outputs",

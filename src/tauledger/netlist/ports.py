@@ -10,7 +10,7 @@ from collections.abc import Mapping, Sequence
 from msgspec import Struct
 from msgspec.structs import replace
 
-from tauledger.circuit import GROUND, Drive, Element, Port, PortKind, fold
+from tauledger.circuit import GROUND, Circuit, Drive, Element, Port, PortKind, fold
 from tauledger.errors import InputError
 from tauledger.netlist.diagnostics import Site, nearest, visible
 from tauledger.netlist.hints import Asked, foremost
@@ -30,22 +30,19 @@ class Driven(Struct, frozen=True):
 
 
 def choose_drive(elements: Sequence[Element], wanted: str | None, *, supplied: frozenset[int] = frozenset()) -> Driven:
-    """Drive every source with an AC value, or the one source that is wanted with 1 and all others with 0.
+    """Drive every source with an AC value, or those that are wanted and no other: one with 1, a pair with ½ and −½.
 
+    wanted: "VIN", or "VP,VN" for the difference of two.
     supplied: numbers of the nodes that feed collectors and drains; a source there is a supply.
     Raises InputError where no source has an AC value, and where the wanted one does not exist or is no source.
     """
     sources = [element for element in elements if element.letter in "VI"]
     names = ", ".join(element.name for element in sources[:MOST_CANDIDATES])
     if wanted is not None:
-        chosen = next((element for element in sources if fold(element.name) == fold(wanted)), None)
-        if chosen is None:
-            raise InputError(
-                f"no voltage or current source is called {visible(wanted)!r}",
-                nearest(wanted, [element.name for element in sources], otherwise=f"there are: {names or 'none'}"),
-            )
-        elements = [_with_ac(element, 1.0 if element is chosen else 0.0) for element in elements]
-        return Driven(tuple(elements), (Drive(chosen.name, _kind(chosen), 1.0 + 0.0j),))
+        chosen = [_source(sources, name.strip(), names) for name in wanted.split(",")]
+        sizes = {element.name: size for element, size in zip(chosen, _sizes(wanted, chosen), strict=True)}
+        elements = [_with_ac(element, sizes.get(element.name, 0.0)) for element in elements]
+        return Driven(tuple(elements), tuple(Drive(one.name, _kind(one), complex(sizes[one.name])) for one in chosen))
     driven = driven_as_written(elements)
     if not driven.drive:
         signals = [element for element in sources if supplied.isdisjoint(element.nodes)]
@@ -56,6 +53,28 @@ def choose_drive(elements: Sequence[Element], wanted: str | None, *, supplied: f
             + (f" (there are: {names})" if sources else ""),
         )
     return driven
+
+
+def _source(sources: Sequence[Element], wanted: str, names: str) -> Element:
+    for element in sources:
+        if fold(element.name) == fold(wanted):
+            return element
+    raise InputError(
+        f"no voltage or current source is called {visible(wanted)!r}",
+        nearest(wanted, [element.name for element in sources], otherwise=f"there are: {names or 'none'}"),
+    )
+
+
+def _sizes(wanted: str, chosen: Sequence[Element]) -> tuple[float, ...]:
+    if len(chosen) == 1:
+        return (1.0,)
+    if len(chosen) > 2:
+        raise InputError(f"--input {visible(wanted)}: {len(chosen)} sources", "name one, or the two of a pair: VP,VN")
+    if chosen[0] is chosen[1]:
+        raise InputError(f"--input {visible(wanted)}: twice the same source", "name the two of a pair: VP,VN")
+    if chosen[0].letter != chosen[1].letter:
+        raise InputError(f"--input {visible(wanted)}: a voltage and a current", "name two sources of one kind")
+    return 0.5, -0.5
 
 
 def driven_as_written(elements: Sequence[Element]) -> Driven:
@@ -171,6 +190,20 @@ def parse_port(text: str, nodes: Sequence[str], currents: Mapping[str, Port]) ->
     if first == second:
         raise InputError(f"the output {visible(text)} is always 0", "name a node other than ground")
     return Port(first, second)
+
+
+def port_of(circuit: Circuit, text: str) -> Port:
+    """Read an output of a flat circuit as `parse_port` does, any node and the current of any source or inductor.
+
+    Raises InputError as that does.
+    """
+    passives, nodes = circuit.passives, circuit.nodes
+    ends = zip(passives.kind, passives.name, passives.a.tolist(), passives.b.tolist(), strict=True)
+    currents = {name: Port(nodes[a], nodes[b]) for kind, name, a, b in ends if kind == "L"}
+    for element in circuit.elements:
+        if element.letter in "VL":
+            currents[element.name] = Port(nodes[element.nodes[0]], nodes[element.nodes[1]])
+    return parse_port(text, nodes, currents)
 
 
 def _known(name: str, names: Sequence[str], words: str) -> str:

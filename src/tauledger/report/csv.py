@@ -20,8 +20,10 @@ HEADER = ("table", "name", "quantity", "value", "unit")
 LEFT_OUT = ("curves", "miller", "loop_curves")
 UNITS = {
     "hz": "Hz", "s": "s", "ohm": "ohm", "f": "F", "farad": "F", "db": "dB", "deg": "degree", "c": "degree Celsius",
+    "a": "A", "v": "V",
 }  # fmt: skip
 PER_FARAD = "Hz/F"
+VOLT_PER_SECOND = ("v_per_s", "V/s")
 # What tells the rows of a table apart; rows without any of these are counted.
 IDENTITY = (
     "loop",
@@ -110,4 +112,8 @@ def _unit(quantity: str, value: Any) -> str:
         return ""
     if quantity.startswith("per_farad"):
         return PER_FARAD
+    if quantity.endswith(VOLT_PER_SECOND[0]):
+        return VOLT_PER_SECOND[1]
+    if quantity == "hz":
+        return UNITS[quantity]
     return UNITS.get(quantity.rsplit("_", 1)[-1], "") if "_" in quantity else ""

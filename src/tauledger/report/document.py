@@ -36,7 +36,7 @@ from tauledger.report.tables.working import Lines, working
 from tauledger.report.wording import EDGE, fraction, move, withheld
 from tauledger.report.working import node_title
 
-FigureName = Literal["time", "shares", "way", "bode", "stages", "plane", "loop"]
+FigureName = Literal["time", "shares", "way", "bode", "stages", "plane", "loop", "impedance"]
 
 
 class Prose(Struct, frozen=True):
@@ -113,6 +113,9 @@ def document(review: Review) -> Document:
         _loops(review),
         _helps(review),
         _large_signal(review),
+        _modes(review),
+        _outputs(review),
+        _impedances(review),
         _own(review),
         _curve(review),
         _lower(review),
@@ -300,6 +303,34 @@ def _items(causes: Iterable[CauseFacts], review: Review) -> tuple[Item, ...]:
         Item(f"{EDGE.get(cause.quantity, cause.quantity)} {move(cause.effect)}", cause_text(cause, review))
         for cause in causes
     )
+
+
+def _modes(review: Review) -> Section:
+    from tauledger.report.tables import modes
+
+    return Section("modes", "Differential and common mode", (modes.modes(review),) if review.modes else ())
+
+
+def _outputs(review: Review) -> Section:
+    from tauledger.report.tables import modes
+
+    return Section("outputs", "Further outputs", (modes.further_outputs(review),) if review.outputs else ())
+
+
+def _impedances(review: Review) -> Section:
+    from tauledger.report.tables import impedances
+
+    if not review.impedances:
+        return Section("impedances", "", ())
+    caption = (
+        "Size and angle over frequency, exact. The output's without its load is that of the circuit alone, its bias "
+        "held; the input's is what the drive sees, all other sources as they are."
+    )
+    blocks: list[Block] = [Picture("impedance", caption), impedances.impedances(review)]
+    lines = impedances.workings(review)
+    if lines:
+        blocks.append(Folded("Working by hand, in Ω and S, at mid-band", (Lines(lines),)))
+    return Section("impedances", "Input and output impedance", tuple(blocks))
 
 
 def _large_signal(review: Review) -> Section:

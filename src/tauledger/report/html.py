@@ -125,9 +125,11 @@ def _pictures(name: str, review: Review) -> tuple[Drawn, ...]:
     if name == "plane":
         both = plane_chart(review)
     else:
+        from tauledger.report.charts.impedance import impedance_chart
         from tauledger.report.charts.loop import loop_chart
 
         charts = {"time": time_chart, "shares": share_chart, "way": way_chart, "bode": bode_chart, "loop": loop_chart}
+        charts["impedance"] = impedance_chart
         draw = charts[name]
         both = draw(review).replace('class="chart"', 'class="chart wide"', 1)
         both += draw(review, narrow=True)

@@ -71,6 +71,7 @@ def render(
         poles.poles_and_zeros(review, verbose=verbose),
         *_unity_budget(review),
         large_signal.large_signal(review, verbose=verbose),
+        *_drives_and_outputs(review),
         *(workings(review, [node]) for node in working if not verbose),
         changed.read_past(review) if verbose else Section(()),
         reasons.closing(review),
@@ -93,6 +94,15 @@ def _unity_budget(review: Review) -> tuple[Section, ...]:
     from tauledger.report import phase, wants
 
     return phase.phase_used(review), wants.what_it_takes(review)
+
+
+def _drives_and_outputs(review: Review) -> tuple[Section, ...]:
+    """Give modes, further outputs and impedances, which few reviews have."""
+    if not (review.modes or review.outputs or review.impedances):
+        return ()
+    from tauledger.report import impedances, modes
+
+    return modes.modes(review), modes.further_outputs(review), impedances.impedances(review)
 
 
 def _painted(lines: Sequence[Line]) -> str:

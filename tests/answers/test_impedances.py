@@ -1,0 +1,149 @@
+"""Input and output impedance of whole boards: ngspice and algebra agree, paper agrees at mid-band."""
+
+from __future__ import annotations
+
+import cmath
+import math
+from pathlib import Path
+
+import numpy as np
+import pytest
+
+from tauledger.asked import Asked
+from tauledger.engine.client import Engine
+from tauledger.pipeline import review
+from tauledger.record import ImpedanceFacts, Review
+from tauledger.report.charts.impedance import impedance_chart
+from tauledger.report.document import document
+from tauledger.report.impedances import impedances, parallel
+from tauledger.report.layout import lay_out
+
+FIXTURES = Path(__file__).parents[2] / "fixtures"
+BOARDS = ("echo_preamp", "echo_cascode", "mos_gain", "photo_front", "line_driver", "pair")
+
+
+@pytest.fixture(scope="module")
+def reviews(engine: Engine) -> dict[str, Review]:
+    return {name: review(FIXTURES / f"{name}.cir", engine=engine, asked=Asked(impedances=True)) for name in BOARDS}
+
+
+def found(one: Review, side: str, says: str) -> ImpedanceFacts:
+    return next(facts for facts in one.impedances if facts.side == side and facts.says.startswith(says))
+
+
+@pytest.mark.parametrize("name", BOARDS)
+def test_ngspice_and_the_rebuilt_network_give_the_same_impedances(name: str, reviews: dict[str, Review]) -> None:
+    """1e-6 over the whole curve, load taken away included."""
+    assert reviews[name].impedances
+    for facts in reviews[name].impedances:
+        assert len(facts.curve) > 200
+        exact = np.array([phasor(point.exact_ohm, point.exact_deg) for point in facts.curve])
+        simulated = np.array([phasor(point.simulated_ohm, point.simulated_deg) for point in facts.curve])
+        assert np.max(np.abs(simulated / exact - 1.0)) < 1e-6, (facts.side, facts.says)
+        for point in facts.points:
+            assert point.simulated_real_ohm is not None
+            assert point.simulated_imag_ohm is not None
+            assert point.real_ohm is not None
+            assert point.imag_ohm is not None
+            ours = complex(point.real_ohm, point.imag_ohm)
+            assert abs(complex(point.simulated_real_ohm, point.simulated_imag_ohm) / ours - 1.0) < 1e-6
+
+
+def phasor(ohm: float | None, deg: float | None) -> complex:
+    assert ohm is not None
+    assert deg is not None
+    return cmath.rect(ohm, math.radians(deg))
+
+
+def test_r_parallel_c_is_the_impedance(reviews: dict[str, Review]) -> None:
+    for name in BOARDS:
+        for facts in reviews[name].impedances:
+            for point in facts.points:
+                assert None not in (point.real_ohm, point.imag_ohm, point.parallel_ohm, point.parallel_farad)
+                y = 1.0 / point.parallel_ohm + 2j * math.pi * point.hz * point.parallel_farad  # type: ignore[operator]
+                assert 1.0 / y == pytest.approx(complex(point.real_ohm, point.imag_ohm), rel=1e-9)  # type: ignore[arg-type]
+
+
+def test_the_series_resistor_is_left_out_and_counted_in(reviews: dict[str, Review]) -> None:
+    one = reviews["echo_preamp"]
+    beyond, whole = found(one, "input", "beyond RS"), found(one, "input", "with RS")
+    assert beyond.left_out == ("RS",)
+    for without, total in zip(beyond.points, whole.points, strict=True):
+        assert without.real_ohm is not None
+        assert total.real_ohm == pytest.approx(without.real_ohm + 600.0)
+        assert total.imag_ohm == pytest.approx(without.imag_ohm)
+
+
+def test_paper_looks_into_the_base_and_into_the_collector(reviews: dict[str, Review]) -> None:
+    """R1 ‖ R2 ‖ (r_b + r_π) within 2 % of the exact R at mid-band; R3 ‖ RL ‖ r_o at the output."""
+    one = reviews["echo_preamp"]
+    for facts, names in (
+        (found(one, "input", "beyond RS"), ("R2", "into base of Q1")),
+        (found(one, "output", "with RL, CL"), ("RL", "into collector of Q1")),
+        (found(one, "output", "without RL, CL"), ("R3", "into collector of Q1")),
+    ):
+        assert facts.hand_ohm == pytest.approx(facts.points[0].parallel_ohm, rel=0.02)
+        assert all(name in facts.hand_text for name in names)
+    assert "RL" not in found(one, "output", "without RL, CL").hand_text.split("=")[1]
+
+
+def test_feedback_lowers_what_the_output_shows_and_paper_says_by_how_much(reviews: dict[str, Review]) -> None:
+    facts = found(reviews["mos_gain"], "output", "with ")
+    assert "R0/(1 + T)" in facts.hand_text
+    assert facts.hand_ohm == pytest.approx(facts.points[0].parallel_ohm, rel=0.01)
+
+
+def test_two_sources_are_seen_as_they_drive_and_paper_keeps_silent(reviews: dict[str, Review]) -> None:
+    """Half the differential input impedance each: r_b + r_π + (β + 1)·RE beside 47 kΩ, tail at rest."""
+    for facts in reviews["pair"].impedances:
+        if facts.side == "input":
+            assert "the other sources driving too" in facts.says
+            assert (facts.hand_ohm, facts.hand_text) == (None, "")
+
+
+def test_a_photodiode_sees_what_its_current_flows_into(reviews: dict[str, Review]) -> None:
+    (facts,) = (one for one in reviews["photo_front"].impedances if one.side == "input")
+    assert facts.hand_ohm == pytest.approx(facts.points[0].parallel_ohm, rel=0.01)
+    assert "RF/(1 − K)" in facts.hand_text
+
+
+def test_after_the_answer_the_engine_holds_the_deck_of_the_review_again(engine: Engine) -> None:
+    one = review(FIXTURES / "echo_preamp.cir", engine=engine, asked=Asked(impedances=True))
+    assert one.f_high is not None
+    gain = abs(complex(engine.sweep([one.midband.frequency_hz]).response[0]))
+    assert gain == pytest.approx(abs(complex(one.midband.gain_real, one.midband.gain_imag)), rel=1e-6)
+
+
+def test_they_are_given_when_asked_for_alone(engine: Engine) -> None:
+    assert review(FIXTURES / "echo_preamp.cir", engine=engine).impedances == ()
+
+
+def test_a_current_at_the_output_has_an_input_impedance_alone(engine: Engine) -> None:
+    one = review(FIXTURES / "opamp_filter.cir", engine=engine, output="i(VP)", asked=Asked(impedances=True))
+    assert {facts.side for facts in one.impedances} == {"input"}
+
+
+def test_all_formats_show_them(reviews: dict[str, Review]) -> None:
+    one = reviews["echo_preamp"]
+    lines = [line.text for line in lay_out([impedances(one)], width=80, unicode=True, page=60)]
+    assert all(len(line) <= 80 for line in lines)
+    assert lines[0].startswith("IMPEDANCES")
+    section = next(section for section in document(one).sections if section.key == "impedances")
+    assert len(section.blocks) == 3
+    for narrow in (False, True):
+        assert "out of v(out), without RL, CL" in impedance_chart(one, narrow=narrow)
+
+
+@pytest.mark.parametrize(
+    ("ohm", "farad", "written"),
+    [
+        (1e3, 1e-12, "1.000 kΩ ‖ 1.00 pF"),
+        (1e3, 0.0, "1.000 kΩ"),
+        (None, 1e-12, "1.00 pF"),
+        (1e3, -1.0 / (2 * math.pi * 1e6) ** 2 / 1e-6, "1.000 kΩ ‖ 1.00 µH"),
+        (1e3, None, "1.000 kΩ"),
+        (None, None, "–"),
+    ],
+)
+def test_what_carries_nothing_is_not_written(ohm: float | None, farad: float | None, written: str) -> None:
+    assert parallel(ohm, farad, 1e6) == written
