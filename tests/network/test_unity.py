@@ -6,7 +6,7 @@ import math
 
 import numpy as np
 import pytest
-from hypothesis import given, settings
+from hypothesis import assume, given, settings
 from hypothesis import strategies as st
 
 from strategies import decades
@@ -23,6 +23,7 @@ from tauledger.devices.parts import (
 from tauledger.network.assemble import Network
 from tauledger.network.edges import find_edges
 from tauledger.network.midband import find_midband
+from tauledger.network.poles import find_poles
 from tauledger.network.solve import response
 from tauledger.network.unity import Unity, find_unity, is_ratio
 
@@ -81,11 +82,39 @@ def test_two_poles_have_the_textbook_margin_whatever_the_sign_of_the_gain(
     assert found.further_hz == ()
 
 
-@pytest.mark.parametrize(("second_pole", "margin"), [(1.0, 51.8), (2.0, 65.5), (3.0, 72.4)])
-def test_a_second_pole_at_the_gain_bandwidth_product_leaves_52_degrees(second_pole: float, margin: float) -> None:
-    """From f_u/GBW = x with x²(1 + x²/k²) = 1, k = p2/GBW: margin 90° − atan(x/k). Known values, from memory."""
-    found = unity_of(amplifier(1e5, 10.0, second_pole * 1e6))
-    assert found.phase_margin_deg == pytest.approx(margin, abs=0.06)
+def closed(gain: float, *poles_hz: float) -> Network:
+    """The same amplifier with all of its output taken from its input: a follower."""
+    parts = sections(gain, *poles_hz)
+    first = next(k for k, part in enumerate(parts) if part.name == "A0.gm")
+    node = parts[first].nodes[1]
+    parts[first] = transconductance("A0", ("0", node), ("in", "out"), gain / R, label="gm")
+    return Network.from_parts(parts, output=Port("out"))
+
+
+three_poles = st.tuples(decades(1e2, 1e6), decades(1e3, 1e7), decades(1e3, 1e7))
+
+
+@settings(max_examples=25, deadline=None, derandomize=True)
+@given(gain=decades(3.0, 1e5), poles=three_poles)
+def test_closed_as_a_follower_the_gain_at_f_u_is_what_the_margin_says(
+    gain: float, poles: tuple[float, float, float]
+) -> None:
+    """|1/(1 + exp(j·(PM − 180°)))| = 1/(2·sin(PM/2)): 1.31 at 45°, 1 at 60°. Gray and Meyer, section 9.4."""
+    found = unity_of(amplifier(gain, *poles))
+    at_unity = abs(response(closed(gain, *poles), np.array([found.hz]))[0])
+    assert at_unity == pytest.approx(0.5 / abs(math.sin(math.radians(found.phase_margin_deg) / 2.0)), rel=1e-6)
+
+
+@settings(max_examples=25, deadline=None, derandomize=True)
+@given(gain=decades(3.0, 1e5), poles=three_poles)
+def test_a_margin_above_zero_is_a_stable_follower(gain: float, poles: tuple[float, float, float]) -> None:
+    """Three real poles: the phase falls all the way, so that either margin alone decides (Bode 1945)."""
+    found = unity_of(amplifier(gain, *poles))
+    assume(abs(found.phase_margin_deg) > 0.1)
+    stable = find_poles(closed(gain, *poles)).stable
+    assert stable is (found.phase_margin_deg > 0.0)
+    assert found.gain_margin_db is not None
+    assert stable is (found.gain_margin_db > 0.0)
 
 
 @pytest.mark.parametrize("gain", [2.0, 8.0, 100.0])
