@@ -21,6 +21,7 @@ from tauledger.compose.setting import unit_of
 from tauledger.errors import NetworkError
 from tauledger.hand.feedback import hand_loop
 from tauledger.hand.ideal_gain import ideal_gain
+from tauledger.hand.open_loop import open_loop
 from tauledger.network.loop_shape import (
     Crossing,
     LoopShape,
@@ -35,7 +36,7 @@ from tauledger.network.return_ratio import Opening, asymptotic, checked, return_
 from tauledger.network.solve import Real, on_axis, response
 from tauledger.network.spectrum import pole_frequencies
 from tauledger.numbers import Numbers
-from tauledger.record import LoopCurve, LoopEstimate, LoopFacts, LoopStageFacts, Review
+from tauledger.record import LoopCurve, LoopEstimate, LoopFacts, LoopNodeFacts, LoopStageFacts, Review
 
 AROUND = np.array([0.97, 0.985, 1.0, 1.015, 1.03])
 CHECKED_AT = np.array([0.1, 1.0, 10.0])
@@ -112,7 +113,8 @@ def _loop(found: Review, subject: Subject, place: Place, *, alone: bool) -> tupl
     facts = _with_gains(facts, numbers, place, at_hz)
     facts = _with_hand(facts, subject, place, at_hz)
     facts = _with_noise_gain(facts, place, at_hz)
-    if place.found and alone:
+    several = place.found and not alone
+    if not several and (place.found or place.amplifier is not None or opening.kind == "wire"):
         facts = _with_estimates(facts, found, numbers, place, shape)
     return replace(facts, says=_says(facts, place)), _curve(place, shape)
 
@@ -188,9 +190,15 @@ def _with_hand(facts: LoopFacts, subject: Subject, place: Place, at_hz: float) -
     if place.loop is None or hand is None:
         return facts
     ideal = ideal_gain(numbers.bands, numbers.devices, hand.stages, place.loop)
-    if ideal is None:
+    if ideal is not None:
+        facts = replace(facts, hand_ideal_gain=float(ideal.value), hand_ideal_text=ideal.text)
+    if facts.open_edge_hz is None:
         return facts
-    return replace(facts, hand_ideal_gain=float(ideal.value), hand_ideal_text=ideal.text)
+    opened = open_loop(numbers.network, numbers.devices, place.loop, at_hz, facts.open_edge_hz)
+    if opened is None:
+        return facts
+    nodes = tuple(LoopNodeFacts(one.node, float(one.ohm), float(one.farad), float(one.seconds)) for one in opened.nodes)
+    return replace(facts, hand_open_edge_hz=float(opened.edge_hz), hand_open_nodes=nodes)
 
 
 def _with_noise_gain(facts: LoopFacts, place: Place, at_hz: float) -> LoopFacts:
@@ -235,6 +243,8 @@ def _with_estimates(facts: LoopFacts, found: Review, numbers: Numbers, place: Pl
     steps: list[tuple[str, float | None]] = []
     if facts.noise_gain_edge_hz is not None:
         steps.append(("gain-bandwidth over noise gain", facts.noise_gain_edge_hz))
+    if facts.hand_open_edge_hz is not None and facts.hand_return_ratio is not None:
+        steps.append(("by hand, edge of T times 1 + T", facts.hand_open_edge_hz * (1.0 + facts.hand_return_ratio)))
     steps += [("edge of T times 1 + T", first), ("loop alone", loop)]
     if ideal is not None:
         steps.append(("ideal gain alone", ideal))

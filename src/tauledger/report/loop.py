@@ -4,16 +4,11 @@ from __future__ import annotations
 
 from tauledger.record import LoopFacts, Review
 from tauledger.report.layout import Block, Prose, Row, Section, Table
-from tauledger.report.tables.loop import lines, loop_rows, title
+from tauledger.report.tables.loop import estimate_rows, loop_rows, title, told
+from tauledger.report.wording import number
 
-LEADS = {
-    "Gain": "gain  ",
-    "By hand": "hand  ",
-    "Amplifier": "amp   ",
-    "f_H": "f_H   ",
-    "Why": "why   ",
-    "Note": "note  ",
-}
+LEADS = {"Gain": "gain  ", "By hand": "hand  ", "Amplifier": "amp   ", "Why": "why   ", "Note": "note  "}
+AFTER = ("Why", "Note")
 
 
 def loops(review: Review) -> Section:
@@ -28,9 +23,21 @@ def _loop(facts: LoopFacts) -> list[Block]:
     head = ("FEEDBACK LOOP" if facts.found else "RETURN RATIO", "exact", "simulated")
     rows = tuple(Row(cells) for cells in loop_rows(facts))
     blocks: list[Block] = [Table("lrr", head, rows), Prose(title(facts), lead="  ")]
-    told = [(LEADS[lead], text) for lead, texts in lines(facts) for text in texts]
-    before = ""
-    for lead, text in told:
-        blocks.append(Prose(text, lead=f"  {lead if lead != before else ' ' * len(lead)}"))
-        before = lead
+    blocks += _sentences(facts, after=False)
+    if facts.estimates:
+        edge = number(facts.open_edge_hz, "Hz")
+        head = (f"  f_H from the loop, whose T has its edge f_T at {edge}", "f_H", "")
+        blocks.append(Table("lrr", head, tuple(Row(cells) for cells in estimate_rows(facts))))
+    blocks += _sentences(facts, after=True)
+    return blocks
+
+
+def _sentences(facts: LoopFacts, *, after: bool) -> list[Block]:
+    """Give the sentences that stand before the estimates of f_H, or after them."""
+    blocks: list[Block] = []
+    for lead, texts in told(facts):
+        if (lead in AFTER) != after:
+            continue
+        for k, text in enumerate(texts):
+            blocks.append(Prose(text, lead=f"  {LEADS[lead] if k == 0 else ' ' * len(LEADS[lead])}"))
     return blocks

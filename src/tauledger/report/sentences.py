@@ -346,6 +346,11 @@ def _does_paper_agree(review: Review) -> str:
     if best is not None and best.method != "sum of time constants" and best.difference is not None:
         text += f"; the method to use here, {method_title(best.method, best.edge)}, {move(best.difference)}"
     text += "."
+    for loop in review.loops:
+        if loop.found:
+            from tauledger.report.tables.loop import around_the_loop
+
+            text = f"{around_the_loop(loop)} {text}".lstrip()
     differ = (cause for cause in review.causes if not cause.on_paper)
     cause = next((cause for cause in differ if EDGE.get(cause.quantity, cause.quantity) == "f_H"), None)
     if cause is not None:

@@ -9,11 +9,12 @@ from tauledger.report.tables.grid import Column, Grid, GridRow
 from tauledger.report.wording import NO_NUMBER, move, number
 
 METHODS = {
-    "gain-bandwidth over noise gain": "GBW over noise gain",
-    "edge of T times 1 + T": "edge of T · (1 + T)",
-    "loop alone": "T/(1 + T) alone",
-    "ideal gain alone": "ideal gain alone",
-    "closed loop, exact": "exact",
+    "gain-bandwidth over noise gain": "by hand, gain-bandwidth / noise gain",
+    "by hand, edge of T times 1 + T": "by hand, f_T·(1 + T0)",
+    "edge of T times 1 + T": "f_T·(1 + T), as with one pole",
+    "loop alone": "T/(1 + T), with all poles of T",
+    "ideal gain alone": "ideal gain A∞, with T → ∞",
+    "closed loop, exact": "closed loop, exact",
 }
 TIMES = 2.0
 
@@ -120,33 +121,34 @@ def noise_text(facts: LoopFacts) -> tuple[str, ...]:
     return (f"noise gain 1/β {_plain(facts.noise_gain)}, its output over what comes back to its inputs{hand}",)
 
 
-def estimates_text(facts: LoopFacts) -> tuple[str, ...]:
-    """Say what T makes of f_H, one idea after the other."""
-    told = [
-        f"{METHODS.get(one.method, one.method)} {number(one.hz, 'Hz')} ({_apart(one.difference)})"
-        for one in facts.estimates
-        if one.method != "gain-bandwidth over noise gain"
-    ]
-    if not told or facts.open_edge_hz is None:
+def open_text(facts: LoopFacts) -> tuple[str, ...]:
+    """Write the edge of T by hand as a sum over the nodes of the opened loop."""
+    if facts.hand_open_edge_hz is None:
         return ()
-    return (f"edge of T {number(facts.open_edge_hz, 'Hz')}; {'; '.join(told)}",)
+    nodes = " + ".join(
+        f"{number(one.ohm, 'Ω', 3)}·{number(one.farad, 'F', 3)} ({_node(one.node)})" for one in facts.hand_open_nodes
+    )
+    exact = facts.open_edge_hz
+    off = "" if not exact else f" ({move(facts.hand_open_edge_hz / exact - 1.0)})"
+    return (f"edge of T with the loop opened f_T = 1/(2π·({nodes})) = {number(facts.hand_open_edge_hz, 'Hz')}{off}",)
+
+
+def estimate_rows(facts: LoopFacts) -> tuple[tuple[str, str, str], ...]:
+    """Give what T makes of f_H, one idea after the other: method, f_H, difference."""
+    return tuple(
+        (METHODS.get(one.method, one.method), number(one.hz, "Hz"), _apart(one.difference)) for one in facts.estimates
+    )
 
 
 def told(facts: LoopFacts) -> tuple[tuple[str, tuple[str, ...]], ...]:
     """Give all sentences with the word that leads them; the estimates of f_H have a table of their own there."""
     return (
         ("Gain", closed_text(facts)),
-        ("By hand", (*hand_text(facts), *hand_ideal_text(facts))),
+        ("By hand", (*hand_text(facts), *hand_ideal_text(facts), *open_text(facts))),
         ("Amplifier", (*instance_text(facts), *noise_text(facts))),
         ("Why", facts.why),
         ("Note", facts.says),
     )
-
-
-def lines(facts: LoopFacts) -> tuple[tuple[str, tuple[str, ...]], ...]:
-    """Give all sentences, those on f_H among them."""
-    first, hand, amplifier, *others = told(facts)
-    return (first, hand, amplifier, ("f_H", estimates_text(facts)), *others)
 
 
 def figures(facts: LoopFacts) -> Grid:
@@ -160,12 +162,15 @@ def figures(facts: LoopFacts) -> Grid:
 def estimates(facts: LoopFacts) -> Grid:
     """Give what T says of f_H as a table; no rows where it says nothing."""
     heads = (Column("What T says of f_H", "l"), Column("f_H"), Column("difference"))
-    rows = tuple(
-        GridRow((METHODS.get(one.method, one.method), number(one.hz, "Hz"), _apart(one.difference)))
-        for one in facts.estimates
-    )
-    edge = "" if facts.open_edge_hz is None else f"The edge of T itself is at {number(facts.open_edge_hz, 'Hz')}."
+    rows = tuple(GridRow(cells) for cells in estimate_rows(facts))
+    edge = "" if facts.open_edge_hz is None else f"f_T, the edge of T itself: {number(facts.open_edge_hz, 'Hz')}."
     return Grid("Closed-loop f_H from the loop", heads, rows, edge)
+
+
+def _node(name: str) -> str:
+    """Name a node of the opened loop: what lies behind the cut is called by its transistor."""
+    owner, cut, _ = name.partition("'loop")
+    return f"inside {owner}" if cut else name
 
 
 def _factor(stage: LoopStageFacts) -> str:
@@ -178,6 +183,20 @@ def _factor(stage: LoopStageFacts) -> str:
 def _plain(value: float) -> str:
     """Write a ratio with four digits, large ones in full."""
     return f"{float(f'{value:.4g}'):.0f}" if 1e4 <= abs(value) < 1e7 else f"{value:#.4g}".rstrip(".")
+
+
+def around_the_loop(facts: LoopFacts) -> str:
+    """Say in a sentence what paper makes of f_H round the loop; nothing where it was not worked out."""
+    by_hand = next((one for one in facts.estimates if METHODS.get(one.method, "").startswith("by hand")), None)
+    if by_hand is None or by_hand.hz is None:
+        return ""
+    formula = METHODS[by_hand.method].removeprefix("by hand, ")
+    off = _apart(by_hand.difference)
+    told = f"Round the feedback loop, {formula} gives {number(by_hand.hz, 'Hz')}, {off}"
+    told += f": {facts.why[0]}." if facts.why else "."
+    if any(node.time_constant_s for node in facts.hand_open_nodes):
+        told += " The time constants of the nodes stand divided by 1 + T and are not the way to f_H."
+    return told
 
 
 def _apart(difference: float | None) -> str:

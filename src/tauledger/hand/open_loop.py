@@ -1,0 +1,117 @@
+"""The band edge of T by hand: the loop cut at its wire, loaded there with what the wire led to, node by node.
+
+The far end of the cut is driven, the near end has the input resistance and capacitance of what was behind it: then the
+loop is an amplifier without feedback, and its time constants are those of any other.
+
+Source: common practice (the loop broken and loaded with its own input impedance).
+"""
+
+from __future__ import annotations
+
+import math
+
+import numpy as np
+from msgspec import Struct
+from msgspec.structs import replace
+
+from tauledger.circuit import GROUND, Port
+from tauledger.devices.family import Device, Terminal, Transconductor
+from tauledger.devices.parts import Part, capacitance, conductance, voltage_source
+from tauledger.errors import InputError, NetworkError
+from tauledger.hand.budget import signal_nodes
+from tauledger.hand.feedback import FoundLoop
+from tauledger.network.assemble import Network, assemble
+from tauledger.network.bands import classify
+from tauledger.network.midband import find_midband
+from tauledger.network.return_ratio import SERIES, at_wire
+from tauledger.network.solve import on_axis, response
+
+DRIVE, SHORT = "loop'v", "loop'0"
+COUNTS = 0.01
+
+
+class OpenNode(Struct, frozen=True):
+    """One node of the opened loop by hand: R in Ω, C in F, R·C in s."""
+
+    node: str
+    ohm: float
+    farad: float
+    seconds: float
+
+
+class OpenLoop(Struct, frozen=True):
+    """The edge of T by hand in Hz, 1/(2π·Σ R·C), and the nodes that take at least 1 % of the sum, largest first."""
+
+    edge_hz: float
+    nodes: tuple[OpenNode, ...]
+
+
+def open_loop(
+    network: Network, devices: tuple[Device, ...], loop: FoundLoop, at_hz: float, edge_hz: float
+) -> OpenLoop | None:
+    """Work the time constants of the opened loop out.
+
+    at_hz: mid-band. edge_hz: about where the edge of T is; the input capacitance is taken there. None for a loop that
+    is not cut at a wire, and where no hand table can be given.
+    Raises NetworkError where the network has no unique solution.
+    """
+    if not loop.node:
+        return None
+    cut = at_wire(network, loop.owner, loop.node)
+    parts = tuple(part for part in cut.network.parts if part.owner != SERIES)
+    silent = dict.fromkeys(network.amplitudes, 0j)
+    siemens, farad = _load(parts, silent, cut.far, loop.node, at_hz, edge_hz)
+    load = [conductance("R_in", loop.node, GROUND, siemens)] if siemens > 0.0 else []
+    load += [capacitance("C_in", loop.node, GROUND, farad)] if farad > 0.0 else []
+    driven = voltage_source(DRIVE, cut.far, GROUND, 1.0)
+    moved = tuple(_moved(one, loop.node, cut.far) if one.name == loop.owner else one for one in devices)
+    try:
+        opened = assemble((*parts, *load, driven), Port(loop.node), {**silent, DRIVE: 1.0})
+        bands = classify(opened, find_midband(opened, at_hz=at_hz or None))
+        if not bands.sound or bands.gain_setting:
+            return None
+        rows = [row for row in signal_nodes(bands, moved) if row.in_path and not row.second]
+    except (NetworkError, InputError):
+        return None
+    total = math.fsum(row.time_constant_s for row in rows)
+    if not total > 0.0:
+        return None
+    ordered = sorted(rows, key=lambda row: -abs(row.time_constant_s))
+    shown = tuple(
+        OpenNode(row.name, row.resistance_hand_ohm, row.capacitance_f, row.time_constant_s)
+        for row in ordered
+        if abs(row.time_constant_s) >= COUNTS * total
+    )
+    return OpenLoop(1.0 / (2.0 * math.pi * total), shown)
+
+
+def _load(
+    parts: tuple[Part, ...], silent: dict[str, complex], far: str, near: str, at_hz: float, edge_hz: float
+) -> tuple[float, float]:
+    """Give conductance at mid-band and capacitance at the edge of what the wire leads to, the near end at ground."""
+    held = (*parts, voltage_source(DRIVE, far, GROUND, 1.0), voltage_source(SHORT, near, GROUND))
+    measured = assemble(held, Port("", kind="current", through=DRIVE), {**silent, DRIVE: 1.0, SHORT: 0j})
+    y = -response(measured, np.array([at_hz, edge_hz]))
+    return float(y[0].real), float(y[1].imag / on_axis(edge_hz)[0].imag)
+
+
+def _moved(device: Device, node: str, far: str) -> Device:
+    """Put what a transistor has at a node at the far end of the cut."""
+
+    def at(one: str) -> str:
+        return far if one == node else one
+
+    cell = device.cell
+    if cell is not None:
+        cell = _moved_cell(cell, node, far)
+    terminals = tuple(Terminal(t.word, at(t.outer), at(t.inner)) for t in device.terminals)
+    parts = tuple(replace(part, nodes=tuple(at(one) for one in part.nodes)) for part in device.parts)
+    return replace(device, cell=cell, terminals=terminals, parts=parts)
+
+
+def _moved_cell(cell: Transconductor, node: str, far: str) -> Transconductor:
+    def at(one: str) -> str:
+        return far if one == node else one
+
+    body = None if cell.body is None else at(cell.body)
+    return replace(cell, control=at(cell.control), common=at(cell.common), output=at(cell.output), body=body)
