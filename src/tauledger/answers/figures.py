@@ -1,6 +1,7 @@
 """The figures that a designer wants of a changed network: margins, unity gain frequency, band edges; exact, by ngspice.
 
-The reference stays at the unchanged mid-band frequency, and the operating point is held.
+The operating point is held. The reference is found anew in the changed network, as a review of the changed netlist
+would find it; one that the user named stays where it is.
 """
 
 from __future__ import annotations
@@ -16,7 +17,7 @@ from tauledger.network.admittance import all_pass
 from tauledger.network.assemble import Network
 from tauledger.network.edges import HALF_POWER, at_same_frequency, find_edges
 from tauledger.network.lines import lumped
-from tauledger.network.midband import MidBand
+from tauledger.network.midband import MidBand, find_midband
 from tauledger.network.spectrum import pole_frequencies
 from tauledger.network.unity import HALF_TURN_DEG, find_unity
 from tauledger.solution import Sweep
@@ -31,8 +32,11 @@ QUANTITIES = {"margin": "°", "gain_margin": "dB", "f_u": "Hz", "f_h": "Hz", "f_
 class Figures(Struct, frozen=True):
     """f_u with its margins, band edges in Hz and mid-band gain in dB of one network; None for what it does not have.
 
-    gain_margin_at_hz: where the phase has turned by half. stable: no pole lies to the right of the axis.
+    reference_hz: mid-band frequency. gain_margin_at_hz: where the phase has turned by half. stable: no pole lies to the
+    right of the axis.
     """
+
+    reference_hz: float
 
     f_unity_hz: float | None
     phase_margin_deg: float | None
@@ -63,18 +67,29 @@ class Figures(Struct, frozen=True):
         return unending.get(quantity) if found is None else found
 
 
-def figures_of(network: Network, midband: MidBand) -> Figures:
-    """Give all figures of a network, exact. midband: of the unchanged network.
+def reference_in(network: Network, midband: MidBand, *, chosen: bool) -> MidBand:
+    """Give the reference of a changed network. midband: of the unchanged one. chosen: the user named its frequency.
 
-    Raises NetworkError where the network has no unique solution.
+    Raises NetworkError where the network has no unique solution, InputError where no signal passes.
     """
-    reference = at_same_frequency(network, midband)
+    if chosen or midband.frequency_hz == 0.0:
+        return at_same_frequency(network, midband)
+    return find_midband(network)
+
+
+def figures_of(network: Network, midband: MidBand, *, chosen: bool) -> Figures:
+    """Give all figures of a changed network, exact; midband, chosen: as in `reference_in`.
+
+    Raises NetworkError where the network has no unique solution, InputError where no signal passes.
+    """
+    reference = reference_in(network, midband, chosen=chosen)
     edges = find_edges(network, reference)
     unity = find_unity(network, reference, edges)
     poles = pole_frequencies(all_pass(lumped(network)))
     # below the floor measuring aids make poles of their own
-    poles = poles[np.abs(poles) > 2.0 * np.pi * midband.floor_hz]
+    poles = poles[np.abs(poles) > 2.0 * np.pi * reference.floor_hz]
     return Figures(
+        reference_hz=reference.frequency_hz,
         f_unity_hz=unity.hz if unity else None,
         phase_margin_deg=unity.phase_margin_deg if unity else None,
         gain_margin_db=unity.gain_margin_db if unity else None,
@@ -86,7 +101,7 @@ def figures_of(network: Network, midband: MidBand) -> Figures:
     )
 
 
-def simulated_figure(run: RunSweep, quantity: str, exact: Figures, midband: MidBand) -> float | None:
+def simulated_figure(run: RunSweep, quantity: str, exact: Figures) -> float | None:
     """Give one figure by ngspice's own response around the exact frequency; None where it has no crossing there.
 
     run: asks the engine for the response of the changed circuit.
@@ -101,7 +116,7 @@ def simulated_figure(run: RunSweep, quantity: str, exact: Figures, midband: MidB
     if near is None:
         return None
     # ngspice has no AC at 0 Hz; that far below the plateau has been reached
-    reference_hz = midband.frequency_hz or FAR_BELOW * min(near, exact.f_high_hz or near)
+    reference_hz = exact.reference_hz or FAR_BELOW * min(near, exact.f_high_hz or near)
     for width in AROUND:
         frequency = np.array([reference_hz, near * (1.0 - width), near, near * (1.0 + width)])
         response = run(np.sort(frequency)).response[np.argsort(np.argsort(frequency))]

@@ -9,14 +9,16 @@ from __future__ import annotations
 import math
 from collections.abc import Callable, Iterator, Mapping, Sequence
 
+import numpy as np
 from msgspec import Struct
 
 from tauledger.answers.elements import Element, elements
 from tauledger.answers.figures import Figures, figures_of
-from tauledger.errors import NetworkError
+from tauledger.errors import InputError, NetworkError
 from tauledger.hand.compensated import CompensatedStage
 from tauledger.network.altered import SeriesResistor, altered
-from tauledger.network.first_order import rerun
+from tauledger.network.edges import HALF_POWER, at_same_frequency
+from tauledger.network.first_order import follow_level
 from tauledger.network.targets import UnityMove, follow_unity, unity_moves
 from tauledger.network.unity import find_unity
 from tauledger.numbers import Numbers
@@ -29,6 +31,7 @@ SLOPE_STEP = 1e-3
 REACHED = 1e-9
 # How far a followed figure and one that is searched for may differ, to be called the same.
 PROVED = 1e-6
+CORRECTIONS = 4
 # Twins of a balanced circuit, as close as its halves are asked to be.
 SAME = 1e-6
 ROUNDS = 60
@@ -119,19 +122,23 @@ def attempt(trial: Trial, quantity: str, wanted: float, numbers: Numbers) -> Fou
     """Solve for the value that reaches the wanted figure; None where the element has no effect or none can be computed.
 
     Where it cannot be reached, the best value within a factor of 100 in the direction that helps. The figure is
-    followed from where it is; the value found is proved by a search of the whole response, and where that does not
-    agree the value is sought by such searches alone.
+    followed from where it is; the value found is proved by a search of the whole response and corrected by what that
+    finds, and where they do not come to agree the value is sought by such searches alone.
     """
     if trial.element is None:
         figures = _figures(trial, 1.0, numbers)
         if figures is None:
             return None
         return Found(trial, 1.0, None, shortfall(quantity, figures.of(quantity), wanted) <= 0.0, figures)
-    followed = _follow(trial, quantity, numbers)
-    if followed is not None:
-        found = _solved(trial, quantity, wanted, numbers, followed)
-        if found is not None:
+    followed, aim = _follow(trial, quantity, numbers), wanted
+    for _ in range(CORRECTIONS):
+        found = _solved(trial, quantity, aim, numbers, followed)
+        if found is None:
+            break
+        left = shortfall(quantity, found.figures.of(quantity), wanted)
+        if not found.reaches or abs(left) <= _near(quantity, wanted):
             return found
+        aim = _aimed(quantity, aim, left)
 
     def searched(factor: float) -> float | None:
         figures = _figures(trial, factor, numbers)
@@ -141,33 +148,39 @@ def attempt(trial: Trial, quantity: str, wanted: float, numbers: Numbers) -> Fou
 
 
 def _solved(
-    trial: Trial, quantity: str, wanted: float, numbers: Numbers, figure: Callable[[float], float | None]
+    trial: Trial, quantity: str, aim: float, numbers: Numbers, figure: Callable[[float], float | None]
 ) -> Found | None:
+    """Find the value at which `figure`, over the factor on it, is what is aimed at."""
+
     def miss(u: float) -> float:
-        return shortfall(quantity, figure(math.exp(u)), wanted)
+        return shortfall(quantity, figure(math.exp(u)), aim)
 
     start = miss(0.0)
-    slope = 0.0 if start <= 0.0 else (miss(SLOPE_STEP) - miss(-SLOPE_STEP)) / (2.0 * SLOPE_STEP)
     u, first = 0.0, None
     if start > 0.0:
+        slope = (miss(SLOPE_STEP) - miss(-SLOPE_STEP)) / (2.0 * SLOPE_STEP)
         if not math.isfinite(slope) or not slope:
             return None
         straight = -start / slope
         first = math.exp(straight) if abs(straight) <= FARTHEST else None
         u = _walk(miss, math.copysign(1.0, straight), start)
     figures = _figures(trial, math.exp(u), numbers)
-    if figures is None:
-        return None
-    left = shortfall(quantity, figures.of(quantity), wanted)
-    near = PROVED * (wanted if quantity.endswith("margin") else 1.0)
-    if miss(u) <= near < left:
-        # followed to a figure that a search of the whole response does not find
-        return None
-    return Found(trial, math.exp(u), first, left <= near, figures)
+    return None if figures is None else Found(trial, math.exp(u), first, miss(u) <= _near(quantity, aim), figures)
 
 
-def _follow(trial: Trial, quantity: str, numbers: Numbers) -> Callable[[float], float | None] | None:
-    """Give a quick way to the figure over the factor, None for one that has to be searched for."""
+def _near(quantity: str, wanted: float) -> float:
+    return PROVED * (wanted if quantity.endswith("margin") else 1.0)
+
+
+def _aimed(quantity: str, aim: float, left: float) -> float:
+    """Aim by so much beyond as the figure, followed, fell short of what a search of the whole response finds."""
+    if quantity.endswith("margin"):
+        return aim + left
+    return aim * math.exp(-left if quantity in SMALLER_IS_BETTER else left)
+
+
+def _follow(trial: Trial, quantity: str, numbers: Numbers) -> Callable[[float], float | None]:
+    """Give a quick way to the figure over the factor, with the mid-band frequency held."""
     unity = find_unity(numbers.network, numbers.midband, numbers.edges)
 
     def by_unity(factor: float) -> float | None:
@@ -179,12 +192,25 @@ def _follow(trial: Trial, quantity: str, numbers: Numbers) -> Callable[[float], 
         return again.hz if quantity == "f_u" else again.phase_margin_deg
 
     def by_edge(factor: float) -> float | None:
-        again = rerun(numbers.network, numbers.midband, numbers.edges, trial.factors(factor))
-        return again.f_high if quantity == "f_h" else again.f_low
+        changed = altered(numbers.network, trial.factors(factor), trial.series)
+        level = HALF_POWER * abs(at_same_frequency(changed, numbers.midband).gain)
+        start = known[min(known, key=lambda one: abs(math.log(one / factor)))]
+        followed = follow_level(changed, level, np.array([start]))
+        if followed is None:
+            return by_search(factor)
+        known[factor] = float(followed[0])
+        return known[factor]
 
-    if quantity in ("margin", "f_u"):
-        return None if unity is None else by_unity
-    return by_edge if quantity in ("f_h", "f_l") and trial.series is None else None
+    def by_search(factor: float) -> float | None:
+        figures = _figures(trial, factor, numbers, held=True)
+        return None if figures is None else figures.of(quantity)
+
+    if quantity in ("margin", "f_u") and unity is not None:
+        return by_unity
+    edge = {"f_h": numbers.edges.f_high, "f_l": numbers.edges.f_low}.get(quantity)
+    # where the edge lay for the values that were tried, to start from the nearest
+    known = {1.0: edge.hz} if edge is not None and edge.hz is not None else {}
+    return by_edge if known else by_search
 
 
 def _walk(miss: Callable[[float], float], direction: float, start: float) -> float:
@@ -224,11 +250,13 @@ def _narrow(miss: Callable[[float], float], out: tuple[float, float], reached: t
     return b
 
 
-def _figures(trial: Trial, factor: float, numbers: Numbers) -> Figures | None:
+def _figures(trial: Trial, factor: float, numbers: Numbers, *, held: bool = False) -> Figures | None:
+    """Give all figures with the element's value times this factor; held: the mid-band frequency is not sought anew."""
     try:
-        return figures_of(altered(numbers.network, trial.factors(factor), trial.series), numbers.midband)
-    except NetworkError:
-        # far from its value an element can leave a network that has no solution: no candidate there
+        changed = altered(numbers.network, trial.factors(factor), trial.series)
+        return figures_of(changed, numbers.midband, chosen=held or numbers.midband_chosen)
+    except (NetworkError, InputError):
+        # far from its value an element can leave a network without solution or signal: no candidate there
         return None
 
 

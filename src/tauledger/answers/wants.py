@@ -15,7 +15,6 @@ from tauledger.asked import Want
 from tauledger.circuit import Circuit
 from tauledger.engine.client import Engine
 from tauledger.errors import EngineError, InputError
-from tauledger.numbers import Numbers
 from tauledger.record import Remedy, Review, WantChange, WantFacts
 
 NOT_TRUSTED = "the rebuilt network is not the simulated circuit: nothing can be worked out on it"
@@ -28,12 +27,13 @@ def want_facts(found: Review, subject: Subject, wants: tuple[Want, ...]) -> tupl
 
     Raises InputError where the circuit has no such figure at all; EngineError where ngspice fails on it.
     """
-    if not subject.numbers.trusted:
+    numbers = subject.numbers
+    if not numbers.trusted:
         raise InputError(f"--want {wants[0].quantity}={wants[0].value:g}: {NOT_TRUSTED}")
-    now = figures_of(subject.numbers.network, subject.numbers.midband)
+    now = figures_of(numbers.network, numbers.midband, chosen=numbers.midband_chosen)
     told = tuple(_answered(found, subject, want, now) for want in wants)
-    if subject.engine is not None and subject.numbers.circuit is not None and not all(one.met for one in told):
-        subject.engine.bias(subject.numbers.circuit, ())
+    if subject.engine is not None and numbers.circuit is not None and not all(one.met for one in told):
+        subject.engine.bias(numbers.circuit, ())
     return told
 
 
@@ -131,12 +131,12 @@ def _by_ngspice(outcome: Found, want: Want, subject: Subject) -> tuple[float | N
         return None, "by algebra alone, all else held"
     values = {one.name: one.value * outcome.factor for one in changed}
     circuit = changed_circuit(numbers.circuit, values, outcome.trial.series)
-    return _run(engine, circuit, outcome.figures, want, numbers)
+    return _run(engine, circuit, outcome.figures, want)
 
 
-def _run(engine: Engine, circuit: Circuit, figures: Figures, want: Want, numbers: Numbers) -> tuple[float | None, str]:
+def _run(engine: Engine, circuit: Circuit, figures: Figures, want: Want) -> tuple[float | None, str]:
     try:
         engine.bias(circuit, ())
-        return simulated_figure(engine.sweep, want.quantity, figures, numbers.midband), ""
+        return simulated_figure(engine.sweep, want.quantity, figures), ""
     except EngineError as error:
         return None, f"ngspice: {error.message}"

@@ -87,7 +87,7 @@ def rerun(network: Network, midband: MidBand, edges: Edges, factors: Mapping[str
         return Recomputed(both.f_high, both.f_low, gain)
     starts = [edge.hz if edge is not None else None for edge in (edges.f_high, edges.f_low)]
     known = np.array([hz for hz in starts if hz is not None])
-    followed = _followed(changed, HALF_POWER * gain, known) if len(known) else known
+    followed = follow_level(changed, HALF_POWER * gain, known) if len(known) else known
     if followed is None:
         both = edge_frequencies(changed, midband)
         return Recomputed(both.f_high, both.f_low, gain)
@@ -96,8 +96,11 @@ def rerun(network: Network, midband: MidBand, edges: Edges, factors: Mapping[str
     return Recomputed(f_high, f_low, gain)
 
 
-def _followed(network: Network, level: float, start_hz: Real) -> Real | None:
-    """Follow |H| = level from every start_hz (k,); None where steps do not get small or lead off by a factor 2."""
+def follow_level(network: Network, level: float, start_hz: Real) -> Real | None:
+    """Follow |H| = level from every start_hz (k,), in Hz; None where steps do not get small or lead off by a factor 2.
+
+    Raises NetworkError where the network has no unique solution.
+    """
     start = np.log(start_hz)
     u = start.copy()
     for _ in range(STEPS):
