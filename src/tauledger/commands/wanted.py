@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from typing import TYPE_CHECKING
 
 from tauledger.commands.console import hertz
@@ -12,6 +13,7 @@ if TYPE_CHECKING:
 
 FIGURES = "margin=60 (degrees), gain_margin=12 (dB), f_u=5meg, f_h=1meg or f_l=20 (Hz)"
 HALF_TURN_DEG = 180.0
+_PLAIN = re.compile(r"[0-9]+(\.[0-9]*)?|\.[0-9]+")
 
 
 def wanted(given: tuple[str, ...]) -> tuple[Want, ...]:
@@ -35,12 +37,12 @@ def _want(text: str) -> Want:
     quantity = name.lower()
     match quantity:
         case "margin":
-            degrees = _number(text, value, "degrees, e.g. margin=60")
+            degrees = _number(text, value, "deg", "degrees, e.g. margin=60")
             if degrees >= HALF_TURN_DEG:
                 raise InputError(f"--want {text}: a phase margin lies below 180 degrees", "give e.g. margin=60")
             return Want("margin", degrees)
         case "gain_margin":
-            return Want("gain_margin", _number(text, value, "decibels, e.g. gain_margin=12"))
+            return Want("gain_margin", _number(text, value, "db", "decibels, e.g. gain_margin=12"))
         case "f_u" | "f_h" | "f_l":
             hz = hertz(f"--want {name}", value) if equals else 0.0
             if not hz > 0.0:
@@ -49,10 +51,9 @@ def _want(text: str) -> Want:
     raise InputError(f"--want {text}: not a figure that can be wanted", f"give {FIGURES}")
 
 
-def _number(text: str, value: str, right: str) -> float:
-    from tauledger.netlist.numbers import read_number
-
-    number = read_number(value)
-    if number is None or number.tail or not 0.0 < number.value < float("inf"):
+def _number(text: str, value: str, unit: str, right: str) -> float:
+    """Read a plain number: a suffix of SPICE would make 60m of 60 degrees a twentieth of one."""
+    bare = value.lower().removesuffix(unit).strip()
+    if not _PLAIN.fullmatch(bare) or not 0.0 < float(bare) < float("inf"):
         raise InputError(f"--want {text}: not a value above 0", f"give {right}")
-    return number.value
+    return float(bare)
