@@ -62,7 +62,7 @@ _ASCII_TABLE = str.maketrans(_ASCII)
 SYMBOLS = "".join(_ASCII)
 
 _GLUE = "\N{NO-BREAK SPACE}"
-BEFORE_A_UNIT = re.compile(r"(?<=[\d∞]) (?=(?:%|[fpnuµmkMGT]?(?:Hz|F|Ω|ohm|s|V|A|S|H)|dB|deg)(?!\w))")
+BEFORE_A_UNIT = re.compile(r"(?<=[\d∞]) (?=(?:%|[fpnuµmkMGT]?(?:Hz|F|Ω|ohm|s|V|A|S|H)|dB(?:Ω|ohm|S)?|deg)(?!\w))")
 
 
 class Row(Struct, frozen=True):
