@@ -17,6 +17,7 @@ from tauledger.asked import Asked
 from tauledger.circuit import NO_CHANGE, Change, Port
 from tauledger.devices.parts import capacitance, resistance, transconductance, voltage_source
 from tauledger.engine.client import Engine
+from tauledger.errors import InputError
 from tauledger.explain import NOTHING
 from tauledger.netlist import read
 from tauledger.network.agreement import Agreement
@@ -190,9 +191,36 @@ def test_who_sets_it_is_told_unasked_only_where_the_band_begins_at_dc_with_gain_
     assert facts_of(asked("series_shunt.cir")).elements
 
 
-@pytest.mark.parametrize("board", ["line_follower.cir", "tia_pair.cir", "cable_driver.cir"])
-def test_a_gain_below_one_and_a_transimpedance_have_no_unity_gain(board: str, engine: Engine) -> None:
-    assert review(FIXTURES / board, engine=engine, asked=Asked(unity=True)).f_unity is None
+@pytest.mark.parametrize(
+    ("board", "why"),
+    [
+        ("line_follower.cir", "gain at mid-band is 0.98"),
+        ("tia_pair.cir", "no plain ratio"),
+        ("cable_driver.cir", "no more than 1"),
+    ],
+)
+def test_a_gain_below_one_and_a_transimpedance_have_no_unity_gain_and_say_so_when_asked(
+    board: str, why: str, engine: Engine
+) -> None:
+    assert review(FIXTURES / board, engine=engine).f_unity is None
+    with pytest.raises(InputError, match=why):
+        review(FIXTURES / board, engine=engine, asked=Asked(unity=True))
+
+
+def test_a_gain_that_levels_off_above_one_has_no_unity_gain() -> None:
+    network = Network.from_parts(
+        [
+            voltage_source("VS", "in", "0", 1.0),
+            transconductance("M1", ("out", "0"), ("in", "0"), 1e-2, label="gm"),
+            resistance("R1", "out", "0", 1e3),
+            resistance("R2", "out", "x", 250.0),
+            capacitance("C1", "x", "0", 1e-9),
+        ],
+        output=Port("out"),
+    )
+    assert review_network(network).f_unity is None
+    with pytest.raises(InputError, match="does not fall to 1"):
+        review_network(network, asked=Asked(unity=True))
 
 
 def test_an_amplifier_with_one_pole_far_below_f_u_is_swept_to_there(engine: Engine, tmp_path: Path) -> None:
@@ -244,7 +272,9 @@ def test_a_circuit_with_a_pole_in_the_right_half_plane_has_no_margin_to_speak_of
         output=Port("out"),
     )
     assert not find_poles(network).stable
-    assert review_network(network, asked=Asked(unity=True)).f_unity is None
+    assert review_network(network).f_unity is None
+    with pytest.raises(InputError, match="unstable"):
+        review_network(network, asked=Asked(unity=True))
 
 
 def test_a_network_that_is_not_trusted_leaves_the_figures_of_ngspice_alone(engine: Engine) -> None:

@@ -32,7 +32,7 @@ def answer(found: Review, subject: Subject, asked: Asked) -> Review:
 
     Raises InputError for a question that this circuit cannot answer.
     """
-    if found.midband.unit in ("V/V", "A/A") and found.midband.gain_db > 0.0:
+    if asked.unity or (found.midband.unit in ("V/V", "A/A") and found.midband.gain_db > 0.0):
         from tauledger.answers.unity import unity_facts
 
         found = replace(found, f_unity=unity_facts(found, subject, asked=asked.unity))

@@ -6,6 +6,7 @@ from msgspec.structs import replace
 
 from tauledger.answers.answer import Subject
 from tauledger.answers.simulated_unity import SimulatedUnity, simulate_unity
+from tauledger.errors import InputError
 from tauledger.network.midband import MidBand
 from tauledger.network.unity import Unity, find_unity, is_ratio
 from tauledger.numbers import Numbers
@@ -21,14 +22,19 @@ def unity_facts(found: Review, subject: Subject, *, asked: bool) -> UnityFacts |
     asked: elements and nodes are wanted; they are given unasked where the plateau reaches down to DC with a gain of 10
     or more, as of an amplifier that is meant to be closed around. Nothing where a pole lies in the right half-plane:
     no margin means anything then. Where the network is not trusted ngspice's figures alone are given.
+    Raises InputError where it was asked and there is none.
     """
     numbers = subject.numbers
     midband = numbers.midband if numbers.trusted or numbers.simulated is None else numbers.simulated.midband
     if not is_ratio(numbers.network) or abs(midband.gain) <= 1.0 or not numbers.poles.stable:
+        if asked:
+            raise _no_unity_gain(numbers, midband)
         return None
     unity = find_unity(numbers.network, numbers.midband, numbers.edges) if numbers.trusted else None
     simulated = _simulated(subject, unity)
     if unity is None and simulated is None:
+        if asked:
+            raise _no_unity_gain(numbers, midband)
         return None
     facts = _facts(found, numbers, unity, simulated)
     if unity is None or not (asked or _is_open(midband)):
@@ -37,6 +43,18 @@ def unity_facts(found: Review, subject: Subject, *, asked: bool) -> UnityFacts |
 
     shares = unity_shares(found, numbers, unity)
     return replace(facts, elements=shares.elements, nodes=shares.nodes)
+
+
+def _no_unity_gain(numbers: Numbers, midband: MidBand) -> InputError:
+    """Say why there is no unity gain."""
+    if not is_ratio(numbers.network):
+        both = "drive and output must both be voltages or both currents"
+        return InputError("--unity: the response is no plain ratio", both)
+    if abs(midband.gain) <= 1.0:
+        return InputError(f"--unity: the gain at mid-band is {abs(midband.gain):.4g}, no more than 1")
+    if not numbers.poles.stable:
+        return InputError("--unity: the circuit is unstable as it is, no margin means anything", "open its loop first")
+    return InputError("--unity: the gain does not fall to 1 beyond mid-band")
 
 
 def _is_open(midband: MidBand) -> bool:
