@@ -13,7 +13,7 @@ from tauledger.causes.catalogue import find_notes
 from tauledger.causes.evidence import Evidence
 from tauledger.circuit import Port
 from tauledger.devices.family import Device, Terminal, Transconductor
-from tauledger.devices.parts import Part, capacitance, inductance, mutual_inductances, resistance, voltage_source
+from tauledger.devices.parts import Part, capacitance, inductance, mutual_inductance, resistance, voltage_source
 from tauledger.network.assemble import Network
 
 
@@ -61,7 +61,7 @@ def test_coupled_inductors_are_called_coupled_and_not_tuned() -> None:
     network = boards.driven(
         [resistance("RS", "s", "b", 50.0)],
         [inductance("L1", "b", "0", 1e-3), inductance("L2", "out", "0", 1e-3)],
-        [*mutual_inductances("K1", "L1", "L2", ("b", "0", "out", "0"), 0.9e-3)],
+        [mutual_inductance("K1", "L1", "L2", ("b", "0", "out", "0"), 0.9e-3)],
         resistance("RL", "out", "0", 50.0),
     )
     found = evidence(network)

@@ -9,7 +9,7 @@ import pytest
 from cells import bipolar
 from tauledger.circuit import Port
 from tauledger.devices.family import Device
-from tauledger.devices.parts import Part, capacitance, inductance, mutual_inductances, resistance, voltage_source
+from tauledger.devices.parts import Part, capacitance, inductance, mutual_inductance, resistance, voltage_source
 from tauledger.explain import Explanation, explain
 from tauledger.hand.estimate import LowerRow
 from tauledger.network.assemble import Network
@@ -31,7 +31,7 @@ def windings(ends: tuple[str, str, str, str], l1: float, l2: float, k: float = 0
     return (
         inductance("L1", a, b, l1),
         inductance("L2", c, d, l2),
-        *mutual_inductances("K1", "L1", "L2", ends, k * math.sqrt(l1 * l2)),
+        mutual_inductance("K1", "L1", "L2", ends, k * math.sqrt(l1 * l2)),
     )
 
 

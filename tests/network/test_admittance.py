@@ -15,7 +15,7 @@ from tauledger.devices.parts import (
     current_gain,
     delayed_transconductance,
     inductance,
-    mutual_inductances,
+    mutual_inductance,
     resistance,
     transconductance,
     transresistance,
@@ -28,9 +28,10 @@ from tauledger.network.assemble import Network
 from tauledger.network.bands import classify, find_midband
 from tauledger.network.constants import open_constants
 from tauledger.network.edges import find_edges
+from tauledger.network.first_order import sensitivities
 from tauledger.network.identities import open_identities, response_identities, share_identities
 from tauledger.network.poles import find_poles
-from tauledger.network.recompute import scaled, without
+from tauledger.network.recompute import each_scaled, edge_frequencies, scaled, without
 from tauledger.network.shares import find_shares
 from tauledger.network.solve import DENSE_LIMIT, log_slope, on_axis, response, solve
 
@@ -57,7 +58,7 @@ def transformer(coupling: float = 0.98) -> Network:
         resistance("RS", "in", "p", 50.0),
         inductance("L1", "p", "0", l1),
         inductance("L2", "out", "0", l2),
-        *mutual_inductances("K1", "L1", "L2", ("p", "0", "out", "0"), m),
+        mutual_inductance("K1", "L1", "L2", ("p", "0", "out", "0"), m),
         resistance("RL", "out", "0", 300.0),
         capacitance("CL", "out", "0", 30e-12),
     )
@@ -196,6 +197,24 @@ def test_scaling_a_gain_scales_it() -> None:
 def test_coupled_inductors_stay_in_both_networks() -> None:
     made = transformer()
     bands = classify(made, find_midband(made))
-    assert {bands.class_of[name] for name in ("L1", "L2", "K1.m_12", "K1.m_21")} == {"tuned"}
+    assert {bands.class_of[name] for name in ("L1", "L2", "K1")} == {"tuned"}
     for kept in (bands.upper, bands.lower):
-        assert {"L1", "L2", "K1.m_12", "K1.m_21"} <= {part.name for part in kept.parts}
+        assert {"L1", "L2", "K1"} <= {part.name for part in kept.parts}
+
+
+def test_a_coupling_is_one_part_with_one_share_and_one_rerun() -> None:
+    made = transformer(0.5)
+    midband = find_midband(made)
+    edges = find_edges(made, midband)
+    assert edges.f_high is not None
+    assert edges.f_high.hz is not None
+    shares = find_shares(made, midband, edges.f_high.hz, classify(made, midband).class_of)
+    assert [name for name in shares.parts if name.startswith("K")] == ["K1"]
+    up, down = (edge_frequencies(scaled(made, {"K1": 1.0 + step}), midband).f_high for step in (1e-4, -1e-4))
+    assert up is not None
+    assert down is not None
+    assert shares.parts["K1"] == pytest.approx(-np.log(up / down) / 2e-4, abs=1e-5)
+    less = each_scaled(made, midband, edges, 0.9)
+    assert less["K1"] == edge_frequencies(scaled(made, {"K1": 0.9}), midband)
+    effect = sensitivities(made, midband, edges, ())["K1"].f_high
+    assert effect == pytest.approx(-shares.parts["K1"], rel=1e-9)

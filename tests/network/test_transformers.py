@@ -9,7 +9,7 @@ from hypothesis import strategies as st
 
 import amplifiers
 from tauledger.circuit import Port
-from tauledger.devices.parts import Part, capacitance, inductance, mutual_inductances, resistance, voltage_source
+from tauledger.devices.parts import Part, capacitance, inductance, mutual_inductance, resistance, voltage_source
 from tauledger.network.assemble import Network
 from tauledger.network.bands import classify
 from tauledger.network.midband import find_midband
@@ -24,7 +24,7 @@ def coupled(k: float, l1: float, l2: float, *, ends: tuple[str, str, str, str] =
     return [
         inductance("L1", a, b, l1),
         inductance("L2", c, d, l2),
-        *mutual_inductances("K1", "L1", "L2", ends, k * (l1 * l2) ** 0.5),
+        mutual_inductance("K1", "L1", "L2", ends, k * (l1 * l2) ** 0.5),
     ]
 
 
@@ -107,7 +107,7 @@ def test_loosely_coupled_tuned_circuits_stay_as_they_are_and_tuned() -> None:
 
 def test_a_winding_coupled_with_two_others_stays_as_it_is() -> None:
     parts = [DRIVE, resistance("RS", "in", "p", 50.0), *coupled(0.99, 1e-3, 1e-3), inductance("L3", "t", "0", 1e-3)]
-    parts += mutual_inductances("K2", "L1", "L3", ("p", "0", "t", "0"), 0.5e-3)
+    parts.append(mutual_inductance("K2", "L1", "L3", ("p", "0", "t", "0"), 0.5e-3))
     parts += [resistance("RL", "s", "0", 1e3), resistance("RT", "t", "0", 1e3)]
     network = Network.from_parts(parts, output=Port("s"))
     assert drawn_out(network) is network

@@ -7,7 +7,7 @@ from tauledger.devices.parts import (
     Part,
     capacitance,
     inductance,
-    mutual_inductances,
+    mutual_inductance,
     resistance,
     transconductance,
     voltage_source,
@@ -28,7 +28,7 @@ def test_a_transformer_is_told_by_what_it_does_to_the_band() -> None:
         resistance("RS", "in", "p", 50.0),
         inductance("L1", "p", "0", 1e-3),
         inductance("L2", "out", "0", 4e-3),
-        *mutual_inductances("K1", "L1", "L2", ("p", "0", "out", "0"), 1.996e-3),
+        mutual_inductance("K1", "L1", "L2", ("p", "0", "out", "0"), 1.996e-3),
         resistance("RL", "out", "0", 300.0),
         capacitance("CL", "out", "0", 30e-12),
     )
@@ -43,7 +43,7 @@ def test_loosely_coupled_inductors_are_coupled_and_do_not_resonate() -> None:
         resistance("RS", "in", "p", 50.0),
         inductance("L1", "p", "0", 1e-3),
         inductance("L2", "out", "0", 4e-3),
-        *mutual_inductances("K1", "L1", "L2", ("p", "0", "out", "0"), 1.0e-3),
+        mutual_inductance("K1", "L1", "L2", ("p", "0", "out", "0"), 1.0e-3),
         resistance("RL", "out", "0", 300.0),
         capacitance("CL", "out", "0", 30e-12),
     )

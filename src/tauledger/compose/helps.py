@@ -14,7 +14,7 @@ WORTH_A_ROW = 0.005
 RERUN = 3
 # a resistor that carries less than this has no part in the operating point
 NO_VOLT = 1e-6
-UNITS = {"capacitance": "F", "inductance": "H", "conductance": "Ω", "line": "s"}
+UNITS = {"capacitance": "F", "inductance": "H", "conductance": "Ω", "line": "s", "mutual inductance": "H"}
 
 
 def helps(numbers: Numbers) -> tuple[Help, ...]:
@@ -54,6 +54,8 @@ def is_element(part: Part) -> bool:
     card = is_card(part)
     if part.kind in ("capacitance", "inductance", "line"):
         return part.value > 0.0
+    if part.kind == "mutual inductance":
+        return part.value != 0.0
     if part.kind == "conductance":
         return card and part.value > 0.0
     return part.kind in RESISTIVE and (card or part.label == "gm") and part.value != 0.0
@@ -79,7 +81,7 @@ def _row(part: Part, change: Sensitivity, numbers: Numbers) -> Help:
 
 def moves_bias(part: Part, numbers: Numbers) -> bool:
     """Whether the element takes part in the operating point: a resistor that carries direct current, and any gm."""
-    if part.kind in ("capacitance", "inductance", "line"):
+    if part.kind in ("capacitance", "inductance", "line", "mutual inductance"):
         return False
     if part.kind != "conductance":
         return True

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from tauledger.circuit import Circuit, Element, fold
 from tauledger.devices.family import Device, Family, never_refused, readings_of
-from tauledger.devices.parts import mutual_inductances
+from tauledger.devices.parts import mutual_inductance
 from tauledger.solution import Bias, Observation
 
 WORDS = "coupling of two inductors"
@@ -18,8 +18,8 @@ def _observe(element: Element) -> Observation | None:
 def _linearise(circuit: Circuit, element: Element, bias: Bias) -> Device:
     first, second = element.references
     ends = (*_ends(circuit, first), *_ends(circuit, second))
-    parts = mutual_inductances(element.name, first, second, ends, readings_of(bias, element)["k"])
-    return Device(element.name, WORDS, "", (), (), None, parts)
+    part = mutual_inductance(element.name, first, second, ends, readings_of(bias, element)["k"])
+    return Device(element.name, WORDS, "", (), (), None, (part,))
 
 
 def _ends(circuit: Circuit, inductor: str) -> tuple[str, str]:

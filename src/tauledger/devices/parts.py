@@ -6,11 +6,11 @@ value·dv(control)/dt from out_plus through itself to out_minus, like a SPICE G 
 carries value·v(control) as it was `delay_s` before. A voltage gain (SPICE E) has the same four nodes and forces
 v(out_plus) - v(out_minus) = value·v(control). A current gain (F) and a transresistance (H) have two nodes and refer
 to the voltage source whose branch current i they sense: the first carries value·i, the second forces value·i. A
-mutual inductance has the nodes of two inductances, which it refers to; it adds value·di(second)/dt to the voltage of
-the first, so that a pair of them couples both ways. A block has any nodes and carries Σ_j G_ij·v_j + value·Σ_j
-C_ij·dv_j/dt into itself at its node i. A line has nodes (near_plus, near_minus, far_plus, far_minus) and the currents
-into both plus ends as unknowns. A voltage source forces v(a) - v(b); its branch current flows from a through
-the source to b. A current source pushes its current from a through itself to b.
+mutual inductance has the nodes of two inductances, which it refers to; it adds value·di/dt of either to the voltage of
+the other. A block has any nodes and carries Σ_j G_ij·v_j + value·Σ_j C_ij·dv_j/dt into itself at its node i. A line has
+nodes (near_plus, near_minus, far_plus, far_minus) and the currents into both plus ends as unknowns. A voltage source
+forces v(a) - v(b); its branch current flows from a through the source to b. A current source pushes its current from a
+through itself to b.
 """
 
 from __future__ import annotations
@@ -126,14 +126,9 @@ def transresistance(owner: str, a: str, b: str, ohm: float, sensed: str, label: 
     return Part("transresistance", owner, label, (a, b), ohm, references=(sensed,))
 
 
-def mutual_inductances(
-    owner: str, first: str, second: str, ends: tuple[str, str, str, str], henry: float
-) -> tuple[Part, Part]:
+def mutual_inductance(owner: str, first: str, second: str, ends: tuple[str, str, str, str], henry: float) -> Part:
     """The coupling of two inductances, both ways: first, second are their owners, ends their four nodes."""
-    return (
-        Part("mutual inductance", owner, "m_12", ends, henry, references=(first, second)),
-        Part("mutual inductance", owner, "m_21", (*ends[2:], *ends[:2]), henry, references=(second, first)),
-    )
+    return Part("mutual inductance", owner, "", ends, henry, references=(first, second))
 
 
 def block(owner: str, nodes: tuple[str, ...], conductances: Matrix, capacitances: Matrix, label: str = "") -> Part:

@@ -146,7 +146,7 @@ def assemble(parts: tuple[Part, ...], port: Port, drive: Mapping[str, complex]) 
                 p, m = rows
                 g_rows += [(p, sensed[0], part.value), (m, sensed[0], -part.value)]
             case "mutual inductance":
-                c_rows.append((sensed[0], sensed[1], -part.value))
+                c_rows += [(sensed[0], sensed[1], -part.value), (sensed[1], sensed[0], -part.value)]
             case "voltage gain" | "transresistance":
                 p, m = rows[:2]
                 g_rows += [(p, branch, 1.0), (m, branch, -1.0), (branch, p, 1.0), (branch, m, -1.0)]

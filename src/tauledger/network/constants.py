@@ -230,5 +230,5 @@ def _group_delay(network: Network, s: complex) -> float:
 def _facing(kind: PartKind, value: float, tau: float) -> float:
     if kind == "inductance":
         return value / tau if tau != 0.0 else float("inf")
-    # a block's value is a bare factor: what it faces is no single resistance
-    return float("inf") if kind == "block" else tau / value
+    # a block's value is a bare factor, a mutual inductance joins two branches: neither faces a single resistance
+    return float("inf") if kind in ("block", "mutual inductance") else tau / value

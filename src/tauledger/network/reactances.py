@@ -1,6 +1,6 @@
 """Every capacitance, inductance and transcapacitance as a rank-one term of C: C = Σ value · out · controlᵀ.
 
-A block has several terms, one per row of its C; `by_part` takes them together.
+A mutual inductance has two terms and a block one per row of its C; `by_part` takes them together.
 
 All that a single part does to the network follows from it: its time constant value · controlᵀ Z out, its share
 value · (λᵀ out)(controlᵀ x), the pole it owns.
@@ -15,11 +15,12 @@ from tauledger.devices.parts import Part
 from tauledger.network.assemble import Network, Triplets, has_branch, incidence
 from tauledger.network.solve import Complex, Real, Solution
 
+TERMS = {"mutual inductance": 2}
 REACTIVE = ("capacitance", "inductance", "transcapacitance", "mutual inductance", "block")
 
 
 class Reactances(Struct, frozen=True):
-    """The reactive parts in the network's order, a block once per term. value: (m,) F or H. out, control: (n, m)."""
+    """The reactive parts in the network's order, each once per term. value: (m,) F or H. out, control: (n, m)."""
 
     parts: tuple[Part, ...]
     value: Real
@@ -40,7 +41,7 @@ class Reactances(Struct, frozen=True):
 def reactances(network: Network) -> Reactances:
     """Give the rank-one terms of C, one per reactive part; an inductance acts on its own branch current.
 
-    A mutual inductance acts on the branch of the first inductor by the current of the second.
+    A mutual inductance acts on the branch of either inductor by the current of the other.
     """
     blocks = {part.name: _terms(network, part) for part in network.parts if part.kind == "block" and part.value}
     times = {name: len(columns) for name, columns in blocks.items()}
@@ -48,7 +49,7 @@ def reactances(network: Network) -> Reactances:
         part
         for part in network.parts
         if part.kind in REACTIVE
-        for _ in range(times.get(part.name, 0) if part.kind == "block" else 1)
+        for _ in range(times.get(part.name, 0) if part.kind == "block" else TERMS.get(part.kind, 1))
     )
     out = np.zeros((network.size, len(parts)))
     control = np.zeros_like(out)
@@ -62,8 +63,10 @@ def reactances(network: Network) -> Reactances:
             out[network.branch(part.name), k] = 1.0
             control[:, k] = incidence(network, *part.nodes)
         elif part.kind == "mutual inductance":
-            first, second = (network.branch(owner) for owner in part.references)
-            out[first, k], control[second, k] = 1.0, -1.0
+            here, there = (network.branch(owner) for owner in part.references)
+            # its second term stands beside its first
+            here, there = (there, here) if k and parts[k - 1] is part else (here, there)
+            out[here, k], control[there, k] = 1.0, -1.0
         else:
             out[:, k] = incidence(network, part.nodes[0], part.nodes[1])
             control[:, k] = incidence(network, part.nodes[-2], part.nodes[-1])

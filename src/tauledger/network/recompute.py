@@ -78,15 +78,13 @@ def each_scaled(network: Network, midband: MidBand, edges: Edges, factor: float)
         names = (*terms.names, *(line.name for line in network.lines))
         return {name: EdgeFrequencies(None, None) for name in names}
     # a line is no change of rank one either
-    result = {
-        line.name: edge_frequencies(scaled(network, {line.name: factor}), midband) for line in network.lines
-    }
+    result = {line.name: edge_frequencies(scaled(network, {line.name: factor}), midband) for line in network.lines}
     if not terms.parts:
         return result
     frequency = _window(midband, edges)
     gain = np.abs(_each_response(network, terms, np.concatenate([[midband.frequency_hz], frequency]), factor))
     for k, part in enumerate(terms.parts):
-        if part.kind == "block":
+        if part.kind in ("block", "mutual inductance"):
             # several terms at once are no change of rank one
             if part.name not in result:
                 result[part.name] = edge_frequencies(scaled(network, {part.name: factor}), midband)

@@ -41,23 +41,23 @@ def drawn_out(network: Network) -> Network:
 
 
 def _pairs(network: Network) -> list[tuple[Part, tuple[Part, Part], tuple[str, ...]]]:
-    """Give the first mutual inductance of every close pair, its two windings, and the names of all that it replaces."""
+    """Give the mutual inductance of every close pair, its two windings, and the names of all that it replaces."""
     mutual = [part for part in network.parts if part.kind == "mutual inductance"]
     windings = {fold(part.owner): part for part in network.parts if part.kind == "inductance"}
     times: dict[str, int] = {}
     for part in mutual:
-        times[fold(part.references[0])] = times.get(fold(part.references[0]), 0) + 1
+        for owner in map(fold, part.references):
+            times[owner] = times.get(owner, 0) + 1
     busy = {fold(name) for part in network.parts if part.kind != "mutual inductance" for name in part.references}
     busy |= {fold(network.port.through)} if network.port.kind == "current" else set()
-    found = []
+    found: list[tuple[Part, tuple[Part, Part], tuple[str, ...]]] = []
     for part in mutual:
         first, second = (fold(owner) for owner in part.references)
-        if part.label != "m_12" or {first, second} & busy or times[first] != 1 or times[second] != 1:
+        if {first, second} & busy or times[first] != 1 or times[second] != 1:
             continue
         one, two = windings[first], windings[second]
         if part.value**2 >= CLOSE**2 * one.value * two.value > 0.0:
-            names = (one.name, two.name, *(other.name for other in mutual if other.owner == part.owner))
-            found.append((part, (one, two), names))
+            found.append((part, (one, two), (one.name, two.name, part.name)))
     return found
 
 
