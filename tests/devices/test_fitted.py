@@ -18,6 +18,7 @@ from tauledger.network.solve import response
 from tauledger.numbers import Numbers, solve
 
 AGREES = 1e-6
+SERIES = ("g_c", "g_b", "g_e", "g_drain", "g_gate", "g_source")
 
 STAGE = """River-level gauge, one fitted transistor
 VDD vdd 0 {supply}
@@ -154,10 +155,56 @@ def test_hand_model_of_a_fitted_transistor_is_its_low_frequency_gain(case: str, 
     part = {p.name: p.value for p in numbers.network.parts if p.kind == "conductance"}
     r_o = cell.r_o or float("inf")
     load = 1.0 / (part["RD"] + 1.0 / r_o)
-    degeneration = 1.0 + cell.gm / part["RE"] if cell.common == "e" else 1.0
+    own = sum(1.0 / part[name] for name in ("Q1.g_e", "Z1.g_source") if name in part)
+    degeneration = 1.0 + cell.gm * (own + (1.0 / part["RE"] if " e b m" in CASES[case] else 0.0))
     divider = 1.0 / (1.0 + 1e3 / (cell.r_pi * degeneration)) if cell.r_pi else 1.0
     gain = abs(complex(response(numbers.network, np.array([1e3]))[0]))
     assert gain == pytest.approx(cell.gm * load / degeneration * divider, rel=0.05)
+
+
+@pytest.mark.parametrize(
+    ("case", "temperature", "exponents", "expected"),
+    [
+        ("vbic active", -40.0, {"g_c": 1.2, "g_b": 0.5, "g_e": 0.5}, {"g_c": 10.0, "g_b": 10.0, "g_e": 2.0}),
+        ("vbic pnp m area", 125.0, {"g_c": 1.2, "g_b": 0.5, "g_e": 0.5}, {"g_c": 10 / 6, "g_b": 10 / 6, "g_e": 2 / 6}),
+        ("quasi-saturation active", 27.0, {}, {"g_c": 10.0, "g_e": 1.0}),
+        ("hicum active", 27.0, {}, {"g_c": 5.0, "g_e": 2.0}),
+        ("mesfet triode", 27.0, {}, {"g_drain": 2.5, "g_source": 2.5}),
+        ("jfet level 2 with cds", 27.0, {}, {"g_drain": 10.0, "g_source": 10.0}),
+        ("bsim3 impact ionisation", 27.0, {}, {"g_drain": 5.0, "g_source": 5.0}),
+        ("bsim4 saturation", 27.0, {}, {}),
+    ],
+)
+def test_series_resistances_are_parts_of_their_own(
+    case: str,
+    temperature: float,
+    exponents: dict[str, float],
+    expected: dict[str, float],
+    tmp_path: Path,
+    engine: Engine,
+) -> None:
+    """Those of the model card with area, m and temperature; none where a resistance depends on the voltages."""
+    text = CASES[case].replace("xre=0.5 xrb=0.5", "xre=0.5 xrb=0.5 xrc=1.2")
+    device = device_of(solved(text, tmp_path, engine, Change(temperature_c=temperature)))
+    found = {part.label: 1.0 / part.value for part in device.parts if part.label in SERIES}
+    warmer = (temperature + 273.15) / 300.15
+    assert found == pytest.approx({k: ohm * warmer ** exponents.get(k, 0.0) for k, ohm in expected.items()}, rel=1e-9)
+    inner = {terminal.inner for terminal in device.terminals if terminal.inner != terminal.outer}
+    assert len(inner) == len(expected)
+    if device.cell is not None and "g_b" in expected:
+        assert (device.cell.control, device.cell.output, device.cell.common) == ("Q1'b", "Q1'c", "Q1'e")
+
+
+@pytest.mark.parametrize(("outside", "expected"), [(1.0, ["g_c", "g_b", "g_e"]), (0.5, ["g_c", "g_e"])])
+def test_a_capacitance_at_the_terminal_itself_keeps_the_resistance_inside(
+    outside: float, expected: list[str], tmp_path: Path, engine: Engine
+) -> None:
+    """C_bx of X_CJC hangs at the outer base."""
+    text = CASES["quasi-saturation active"].replace("rbm=20 irb=1m", "").replace("xcjc=.5", f"xcjc={outside}")
+    numbers = solved(text, tmp_path, engine)
+    assert [part.label for part in device_of(numbers).parts if part.label in SERIES] == expected
+    assert numbers.agreement is not None
+    assert numbers.agreement.max_relative_error <= AGREES
 
 
 def test_a_body_tied_to_its_source_changes_no_figure(tmp_path: Path, engine: Engine) -> None:

@@ -1,20 +1,21 @@
 """Families that ngspice does not tell enough about: measured alone, fitted, and reduced to textbook elements.
 
 What the readings of a compact model leave out (quasi-saturation, base modulation, gate and body resistances, tunnel
-currents) is in its terminal admittance; `fit.py` makes G and C of it, `reduced.py` the elements that paper knows. Both
-are imported where an instance is fitted: a board without one does not pay for them.
+currents) is in its terminal admittance; `extrinsic.py` brings out its series resistances, `fit.py` makes G and C of
+what lies behind, `reduced.py` the elements that paper knows. All are imported where an instance is fitted: a board
+without one does not pay for them.
 """
 
 from __future__ import annotations
 
 import math
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Mapping, Sequence
 
 from tauledger.circuit import Circuit, Element, Model
 from tauledger.devices.bsim import BSIM3_LEVELS, BSIM4_LEVELS
 from tauledger.devices.bsim3_parameters import MODEL_PARAMETERS as BSIM3_PARAMETERS
 from tauledger.devices.bsim4_parameters import MODEL_PARAMETERS as BSIM4_PARAMETERS
-from tauledger.devices.family import Device, Family, Refusal, Terminal, Transconductor, names, readings_of
+from tauledger.devices.family import Device, Family, Refusal, Terminal, Transconductor, inner_node, names, readings_of
 from tauledger.devices.field_effect import Ends, cell_of, figures, is_p, mos_region
 from tauledger.devices.gummel_poon import MODEL_PARAMETERS as GUMMEL_POON_PARAMETERS
 from tauledger.devices.gummel_poon import region_of
@@ -31,6 +32,7 @@ from tauledger.devices.model_names import (
     MESFET_A,
     VBIC,
 )
+from tauledger.devices.parts import Part, conductance
 from tauledger.devices.temperature import device_temperature
 from tauledger.solution import Bias, Isolation, Observation
 
@@ -39,6 +41,12 @@ GUMMEL_POON_INNER = ("collector", "collCX", "base", "emitter")
 VBIC_INNER = ("collector", "collCI", "base", "baseBI", "baseBP", "emitter", "substrate", "xf1", "xf2")
 HICUM_INNER = ("collCI", "baseBP", "baseBI", "emitEI", "subsSI", "xf", "xf1", "xf2")
 FET_INNER = ("drain", "source", "gate", "midgate", "dbody", "body", "Body", "sbody", "drainPrmPrm", "sourcePrmPrm")
+
+# The node behind the series resistance of a terminal, by its place: collector, base, emitter; drain, gate, source.
+BEHIND_BIPOLAR = {0: ("collCX", "collector", "collCI"), 1: ("base", "baseBP"), 2: ("emitter", "emitEI")}
+BEHIND_FET = {0: ("drain",), 1: ("gate",), 2: ("source",)}
+LABELS_BIPOLAR = {0: "g_c", 1: "g_b", 2: "g_e"}
+LABELS_FET = {0: "g_drain", 1: "g_gate", 2: "g_source"}
 
 OFF_SIEMENS = 1e-9
 
@@ -62,15 +70,19 @@ def isolated(inner: tuple[str, ...]) -> Callable[[Circuit, Element, Bias], Isola
 
 
 def bipolar(circuit: Circuit, element: Element, bias: Bias) -> Device:
-    """Give a fitted bipolar transistor: hybrid-π between its terminals, and the remainder.
+    """Give a fitted bipolar transistor: series resistances, hybrid-π between what lies behind, and the remainder.
 
     Raises ElementError where no matrices describe it.
     """
+    from tauledger.devices.extrinsic import series_outside
     from tauledger.devices.fit import fit
     from tauledger.devices.reduced import hybrid_pi, placed, with_remainder
 
-    found, name = fit(bias.samples[element.name]), element.name
-    c, b, e = (circuit.nodes[node] for node in element.nodes[:3])
+    outside, name = series_outside(bias.samples[element.name], BEHIND_BIPOLAR), element.name
+    found = fit(outside.behind)
+    outer = [circuit.nodes[node] for node in element.nodes]
+    inner = _inner(name, outer, outside.siemens, "cbe")
+    c, b, e = inner[:3]
     s = circuit.nodes[element.nodes[3]] if len(element.nodes) > 3 else None
     ports = BIPOLAR_TERMINALS[: len(element.nodes)]
     elements = hybrid_pi(name, ports, found, ("collector", "base", "emitter", None if s is None else "substrate"))
@@ -91,9 +103,7 @@ def bipolar(circuit: Circuit, element: Element, bias: Bias) -> Device:
         ("f_t", _transit_hz(gm, c_pi + c_mu)),
         ("gm/I", gm / abs(ampere) if ampere else None),
     )
-    terminals = [Terminal("collector", c, c), Terminal("base", b, b), Terminal("emitter", e, e)]
-    if s is not None:
-        terminals.append(Terminal("substrate", s, s))
+    terminals = [Terminal(*one) for one in zip(BIPOLAR_TERMINALS, outer, inner, strict=False)]
     cell = None
     if len({c, b, e}) == 3 and gm:
         cell = Transconductor(name, b, e, c, gm, _inverse(value.get("g_pi")), _inverse(value.get("g_o")))
@@ -104,24 +114,39 @@ def bipolar(circuit: Circuit, element: Element, bias: Bias) -> Device:
         figures=tuple((symbol, number) for symbol, number in figures if number is not None),
         terminals=tuple(terminals),
         cell=cell,
-        parts=placed(
-            with_remainder(name, ports, found, elements),
-            {port: circuit.nodes[node] for port, node in zip(ports, element.nodes, strict=True)},
+        parts=(
+            *_series(name, outer, inner, outside.siemens, LABELS_BIPOLAR),
+            *placed(with_remainder(name, ports, found, elements), dict(zip(ports, inner, strict=True))),
         ),
     )
 
 
+def _inner(name: str, outer: Sequence[str], siemens: Mapping[int, float], letters: str) -> tuple[str, ...]:
+    """Give the nodes behind the series resistances, the terminals themselves where there are none."""
+    return tuple(inner_node(name, letters[k]) if k in siemens else node for k, node in enumerate(outer))
+
+
+def _series(
+    name: str, outer: Sequence[str], inner: Sequence[str], siemens: Mapping[int, float], labels: Mapping[int, str]
+) -> tuple[Part, ...]:
+    return tuple(conductance(name, outer[k], inner[k], g, labels[k]) for k, g in sorted(siemens.items()))
+
+
 def field_effect(circuit: Circuit, element: Element, bias: Bias) -> Device:
-    """Give a fitted field-effect transistor: channel and charges between its terminals, and the remainder.
+    """Give a fitted field-effect transistor: series resistances, channel and charges behind them, and the remainder.
 
     Drain and source are exchanged where the gate's current flows the other way.
     Raises ElementError where no matrices describe it.
     """
+    from tauledger.devices.extrinsic import series_outside
     from tauledger.devices.fit import fit
     from tauledger.devices.reduced import placed, quasi_static, with_remainder
 
-    found, name = fit(bias.samples[element.name]), element.name
-    d, g, s = (circuit.nodes[node] for node in element.nodes[:3])
+    outside, name = series_outside(bias.samples[element.name], BEHIND_FET), element.name
+    found = fit(outside.behind)
+    outer = [circuit.nodes[node] for node in element.nodes]
+    inner = _inner(name, outer, outside.siemens, "dgs")
+    d, g, s = inner[:3]
     b = circuit.nodes[element.nodes[3]] if len(element.nodes) > 3 else None
     ports, body = MOS_TERMINALS[: len(element.nodes)], None if b is None else "body"
     forward = quasi_static(name, ports, found, ("drain", "gate", "source", body))
@@ -151,11 +176,11 @@ def field_effect(circuit: Circuit, element: Element, bias: Bias) -> Device:
         region=_region(read, gm, g_o, turned=turned),
         # models that do not tell their current leave out what follows from it
         figures=tuple((symbol, number) for symbol, number in told if math.isfinite(number)),
-        terminals=ends.terminals(),
+        terminals=tuple(Terminal(*one) for one in zip(MOS_TERMINALS, outer, inner, strict=False)),
         cell=cell_of(name, ends, gm, g_o, g_mb) if len({d, g, s}) == 3 else None,
-        parts=placed(
-            with_remainder(name, ports, found, elements),
-            {port: circuit.nodes[node] for port, node in zip(ports, element.nodes, strict=True)},
+        parts=(
+            *_series(name, outer, inner, outside.siemens, LABELS_FET),
+            *placed(with_remainder(name, ports, found, elements), dict(zip(ports, inner, strict=True))),
         ),
     )
 
