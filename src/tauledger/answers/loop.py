@@ -61,7 +61,12 @@ def with_loops(found: Review, subject: Subject, asked: Sequence[str]) -> Review:
     Raises InputError where a name is no place at which a return ratio can be taken.
     """
     numbers = subject.numbers
-    places = [named_place(numbers, name) for name in asked] if asked else find_places(numbers, subject.explanation)
+    places = find_places(numbers, subject.explanation)
+    if asked:
+        # what is known of the loop around the amplifier holds where a user names the same wire
+        known = {place.name: replace(place, found=False) for place in places}
+        named = [named_place(numbers, name) for name in asked]
+        places = [known.get(place.name, place) for place in named]
     if not places:
         return found
     taken = [_loop(found, subject, place, alone=len(places) == 1) for place in places]
@@ -262,13 +267,13 @@ def _says(facts: LoopFacts, place: Place) -> tuple[str, ...]:
         told.append("|T| does not fall through 1 above mid-band")
     if facts.kind == "admittance":
         told.append(
-            "the return ratio of an admittance: the reference is the element taken out, so that 1 + T is what it "
-            "does to the network, not what comes back round a loop"
+            "the return ratio of an admittance: A0 is the gain with the element taken out, A∞ with a short in its "
+            "place; 1 + T is what it does to the network, not what comes back round a loop"
         )
     elif facts.kind == "source" and place.device:
         told.append(
             f"it counts every loop through {place.device}, its own emitter or source resistor and what bridges it "
-            "included; no wire carries it alone, so that ngspice cannot be asked for it"
+            f"included; no wire carries it alone; --loop {place.device}.{place.control} is what ngspice tells there"
         )
     elif facts.kind == "wire" and not facts.found:
         told.append("double injection: of what passes the wire both ways T is the part that is not reciprocal")

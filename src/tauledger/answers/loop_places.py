@@ -53,6 +53,7 @@ class Place(Struct, frozen=True):
 
     name: as the user gave it, or as they would. where: in words. cut: where ngspice injects to give the same T, None
     where no wire carries it alone. device: the transistor at which a wire's loop is worked out by hand. path: nodes.
+    control: what its control terminal is called.
     """
 
     name: str
@@ -64,6 +65,7 @@ class Place(Struct, frozen=True):
     path: tuple[str, ...] = ()
     amplifier: Amplifier | None = None
     loop: FoundLoop | None = None
+    control: str = ""
 
 
 def named_place(numbers: Numbers, name: str) -> Place:
@@ -76,7 +78,13 @@ def named_place(numbers: Numbers, name: str) -> Place:
     owner, dot, terminal = name.rpartition(".")
     if device is not None and device.terminals:
         parts = _controlled(network, device.name)
-        return Place(device.name, f"gm of {device.name}", at_source(network, parts), device=device.name)
+        return Place(
+            device.name,
+            f"gm of {device.name}",
+            at_source(network, parts),
+            device=device.name,
+            control=_control_word(device),
+        )
     parts = _controlled(network, name)
     if parts:
         return _at_controlled(numbers, network, parts)
@@ -175,6 +183,12 @@ def _lone(parts: list[Part]) -> Amplifier | None:
     return Amplifier(part.owner, (part,), (part.nodes[2], part.nodes[3]), part.nodes[0], ())
 
 
+def _control_word(device: Device) -> str:
+    assert device.cell is not None
+    control = device.cell.control
+    return next((t.word for t in device.terminals if t.inner == control), "control")
+
+
 def _into_terminal(numbers: Numbers, device: Device, terminal: str) -> Place:
     words = [t for t in device.terminals if t.word.startswith(fold(terminal))] if terminal else []
     if len(words) != 1:
@@ -268,6 +282,7 @@ def _known(numbers: Numbers, network: Network) -> str:
     )
     named = [*devices, *sources]
     some = ", ".join(named[:8]) + (", …" if len(named) > 8 else "")
-    wire = f"{devices[0]}.{numbers.devices[0].terminals[0].word}" if devices and numbers.devices[0].terminals else ""
+    first = next((one for one in numbers.devices if one.cell is not None and one.terminals), None)
+    wire = f"{first.name}.{_control_word(first)}" if first is not None else ""
     also = f", a wire into a terminal ({wire})" if wire else ""
     return f"name a source ({some or 'none here'}), a resistor, capacitor or inductor{also}"

@@ -288,8 +288,8 @@ def _loops(review: Review) -> Section:
     for k, facts in enumerate(review.loops):
         blocks.append(loop.figures(facts))
         if k == 0:
-            caption = f"Return ratio T {facts.where}: |T| = 1 at the dot, where the phase is above -180° by the margin."
-            blocks.append(Picture("loop", caption))
+            margin = "|T| = 1 at the dot, where the phase is above -180° by the margin."
+            blocks.append(Picture("loop", f"Return ratio T, {loop.place(facts)}: {margin}"))
         told = [Item(lead, text) for lead, texts in loop.told(facts) for text in texts]
         if told:
             blocks.append(Items(tuple(told)))

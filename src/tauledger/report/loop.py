@@ -26,7 +26,7 @@ def _loop(facts: LoopFacts) -> list[Block]:
     blocks += _sentences(facts, after=False)
     if facts.estimates:
         edge = number(facts.open_edge_hz, "Hz")
-        head = (f"  f_H from the loop, whose T has its edge f_T at {edge}", "f_H", "")
+        head = (f"  f_H from the loop, whose T has its edge at {edge}", "f_H", "")
         blocks.append(Table("lrr", head, tuple(Row(cells) for cells in estimate_rows(facts))))
     blocks += _sentences(facts, after=True)
     return blocks

@@ -58,9 +58,11 @@ def _mark(upper: Axes, lower: Axes, facts: LoopFacts) -> None:
         upper.annotate(
             f" {number(facts.crossover_hz, 'Hz')}, {facts.phase_margin_deg:.0f}° margin",
             (facts.crossover_hz, 0.0),
-            xytext=(3, 4),
+            # T falls from the upper left to the lower right: there is room on the other two sides
+            xytext=(-5, -5) if _late(upper, facts.crossover_hz) else (4, 4),
             textcoords="offset points",
             ha="right" if _late(upper, facts.crossover_hz) else "left",
+            va="top" if _late(upper, facts.crossover_hz) else "bottom",
         )
     if facts.gain_margin_db is not None and facts.gain_margin_at_hz is not None:
         first, last = upper.get_xlim()

@@ -10,8 +10,8 @@ from tauledger.report.wording import NO_NUMBER, move, number
 
 METHODS = {
     "gain-bandwidth over noise gain": "by hand, gain-bandwidth / noise gain",
-    "by hand, edge of T times 1 + T": "by hand, f_T·(1 + T0)",
-    "edge of T times 1 + T": "f_T·(1 + T), as with one pole",
+    "by hand, edge of T times 1 + T": "by hand, edge of T · (1 + T0)",
+    "edge of T times 1 + T": "edge of T · (1 + T), as with one pole",
     "loop alone": "T/(1 + T), with all poles of T",
     "ideal gain alone": "ideal gain A∞, with T → ∞",
     "closed loop, exact": "closed loop, exact",
@@ -19,12 +19,16 @@ METHODS = {
 TIMES = 2.0
 
 
+def place(facts: LoopFacts) -> str:
+    """Say where T is taken."""
+    return {"wire": "cut at the ", "admittance": "at the ", "source": "at "}[facts.kind] + facts.where
+
+
 def title(facts: LoopFacts) -> str:
     """Say where T is taken and which nodes the loop passes."""
-    place = {"wire": "cut at the ", "admittance": "at the ", "source": "at "}[facts.kind] + facts.where
     path = f"; it passes {', '.join(facts.through)}" if facts.through else ""
     how = "; simulated by double injection" if facts.return_ratio_simulated is not None else ""
-    return f"{place}{path}{how}"
+    return f"{place(facts)}{path}{how}"
 
 
 def loop_rows(facts: LoopFacts) -> tuple[tuple[str, str, str], ...]:
@@ -130,7 +134,7 @@ def open_text(facts: LoopFacts) -> tuple[str, ...]:
     )
     exact = facts.open_edge_hz
     off = "" if not exact else f" ({move(facts.hand_open_edge_hz / exact - 1.0)})"
-    return (f"edge of T with the loop opened f_T = 1/(2π·({nodes})) = {number(facts.hand_open_edge_hz, 'Hz')}{off}",)
+    return (f"edge of T, the loop opened: 1/(2π·({nodes})) = {number(facts.hand_open_edge_hz, 'Hz')}{off}",)
 
 
 def estimate_rows(facts: LoopFacts) -> tuple[tuple[str, str, str], ...]:
@@ -163,7 +167,7 @@ def estimates(facts: LoopFacts) -> Grid:
     """Give what T says of f_H as a table; no rows where it says nothing."""
     heads = (Column("What T says of f_H", "l"), Column("f_H"), Column("difference"))
     rows = tuple(GridRow(cells) for cells in estimate_rows(facts))
-    edge = "" if facts.open_edge_hz is None else f"f_T, the edge of T itself: {number(facts.open_edge_hz, 'Hz')}."
+    edge = "" if facts.open_edge_hz is None else f"The edge of T itself: {number(facts.open_edge_hz, 'Hz')}."
     return Grid("Closed-loop f_H from the loop", heads, rows, edge)
 
 
@@ -182,6 +186,8 @@ def _factor(stage: LoopStageFacts) -> str:
 
 def _plain(value: float) -> str:
     """Write a ratio with four digits, large ones in full."""
+    if not value:
+        return "0"
     return f"{float(f'{value:.4g}'):.0f}" if 1e4 <= abs(value) < 1e7 else f"{value:#.4g}".rstrip(".")
 
 
@@ -191,7 +197,7 @@ def around_the_loop(facts: LoopFacts) -> str:
     if by_hand is None or by_hand.hz is None:
         return ""
     formula = METHODS[by_hand.method].removeprefix("by hand, ")
-    off = _apart(by_hand.difference)
+    off = _apart(by_hand.difference).replace("times", "times too high")
     told = f"Round the feedback loop, {formula} gives {number(by_hand.hz, 'Hz')}, {off}"
     told += f": {facts.why[0]}." if facts.why else "."
     if any(node.time_constant_s for node in facts.hand_open_nodes):
