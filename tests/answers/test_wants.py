@@ -17,6 +17,7 @@ from tauledger.errors import InputError
 from tauledger.netlist import read
 from tauledger.pipeline import review, review_network, solve
 from tauledger.record import Remedy, Review, WantFacts
+from tauledger.report.terminal import render
 
 FIXTURES = Path(__file__).parents[2] / "fixtures"
 SERVO = FIXTURES / "servo_gain.cir"
@@ -189,3 +190,10 @@ def test_a_response_without_an_end_meets_any_band_edge() -> None:
     want = want_of(found, "f_l")
     assert want.met
     assert want.now is None or want.now == 0.0
+
+
+def test_the_page_of_a_real_review_keeps_to_80_columns(servo: Review, preamp: Review) -> None:
+    for found in (servo, preamp):
+        text = render(found, color=False, unicode=True).splitlines()
+        assert sum("WHAT IT TAKES" in line for line in text) == sum(bool(want.remedies) for want in found.wants)
+        assert max(len(line) for line in text) <= 80

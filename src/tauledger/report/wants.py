@@ -14,6 +14,7 @@ def what_it_takes(review: Review) -> Section:
         blocks.append(Prose(verdict(want), lead="WANTED  ", style=HEADING if want.met else CAUTION))
         if want.remedies:
             rows = tuple(Row(cells(want, one)) for one in want.remedies)
-            blocks.append(Table("lrrrrr", ("WHAT IT TAKES", *heads(want)), rows))
+            head = ("WHAT IT TAKES", *heads(want))
+            blocks.append(Table("l" + "r" * len(heads(want)), head, rows))
             blocks.append(Prose(notes(want), lead="  "))
     return Section(tuple(blocks), major=True)

@@ -23,7 +23,7 @@ def phase_budget(budget: PhaseBudget) -> Grid:
     """Give the poles and zeros with what they use at f_u, those too small to show together, and what is left."""
     *above, left = budget_cells(budget)
     rows = [*(GridRow(cells) for cells in above), GridRow(left, "sum")]
-    heads = columns("", "exact", "used", "by hand", "off", "used, by hand")
+    heads = columns("pole or zero", "exact", "used", "by hand", "off", "used, by hand")
     note = "; ".join(f"{name}: {text}" for name, text in formulas(budget))
     stage = f"Stage: {budget.stage}. " if budget.stage else ""
     return Grid(f"Phase used up at {number(budget.at_hz, 'Hz', 4)}", heads, tuple(rows), f"{stage}{note}")
@@ -33,7 +33,7 @@ def by_hand(budget: PhaseBudget) -> Grid:
     """Give f_u and phase margin by hand beside exact."""
     rows = tuple(GridRow(step_cells(step)) for step in budget.by_hand)
     reasons = "; ".join(f"{step.figure}: {why}" for step, why in step_reasons(budget))
-    return Grid("Unity gain by hand", columns("", "by hand", "exact", "off"), rows, reasons)
+    return Grid("Unity gain by hand", columns("figure", "by hand", "exact", "off"), rows, reasons)
 
 
 def budget_cells(budget: PhaseBudget) -> tuple[Cells, ...]:
