@@ -12,9 +12,12 @@ from playwright.sync_api import Browser, Page, sync_playwright
 
 from report.cursors import WITH_FACTORS
 from report.literal import ECHO_PREAMP
+from report.pdf import printed
 from tauledger.report.charts.style import PALETTE
 from tauledger.report.html import to_html
 
+# pt per mm
+MM = 72.0 / 25.4
 QUIET = [
     "--no-sandbox",
     "--disable-gpu",
@@ -176,6 +179,28 @@ def test_the_frequency_cursor_follows_mouse_keys_and_finger(browser: Browser, tm
     page.emulate_media(media="print")
     assert page.locator(".cursor").is_hidden()
     context.close()
+
+
+@pytest.mark.parametrize(("paper", "width", "height"), [("A4", 210.0, 297.0), ("Letter", 215.9, 279.4)])
+def test_it_is_printed_on_pages_that_are_used_and_not_clipped(
+    browser: Browser, tmp_path: Path, paper: str, width: float, height: float
+) -> None:
+    file = tmp_path / "review.html"
+    file.write_bytes(to_html(WITH_FACTORS))
+    page = browser.new_page()
+    page.goto(file.as_uri())
+    pages = printed(page.pdf(format=paper))
+    assert 4 <= len(pages) <= 12
+    assert all(one.width == pytest.approx(width * MM, abs=1.0) for one in pages)
+    assert all(one.height == pytest.approx(height * MM, abs=1.0) for one in pages)
+    assert all(one.fill > 1 / 3 for one in pages[:-1]), [one.fill for one in pages]
+    margin = 14.0 * MM
+    assert all(margin < x < one.width - margin and margin < y for one in pages for x, y in one.texts)
+    page.emulate_media(media="print")
+    page.set_viewport_size({"width": round((width - 30.0) / 25.4 * 96.0), "height": 900})
+    assert page.evaluate(TOO_WIDE) == []
+    assert page.evaluate(CUT_OFF) == []
+    page.close()
 
 
 def test_everything_is_read_without_script(browser: Browser, tmp_path: Path) -> None:
