@@ -962,9 +962,9 @@ class LoopFacts(Struct, frozen=True):
     injection). where: in words. found: not asked for. through: signal nodes that it passes. return_ratio_*: T at at_hz
     (mid-band), positive for negative feedback; *_simulated: by double injection in ngspice, None where no wire carries
     that T alone. crossover: the last |T| = 1 above mid-band; lower_crossover below it. open_edge_hz: −3 dB of T.
-    source: for which H = ideal_gain·T/(1 + T) + feedthrough/(1 + T) = closed_gain at at_hz, with source_return_ratio
-    for T; identity_error: largest relative error of that against the network. noise_gain: 1/β of an amplifier.
-    noise_gain_edge_hz: its gain-bandwidth product over that. hand_return_ratio: hand_siemens·Π hand of hand_stages.
+    closing_source: for which H = ideal_gain·T/(1 + T) + feedthrough/(1 + T) = closed_gain at at_hz, with
+    closing_return_ratio for T; identity_error: largest relative error of that against the network. noise_gain: 1/β of
+    an amplifier, noise_gain_edge_hz its gain-bandwidth product over that. hand_return_ratio: hand_siemens·Π hand of hand_stages.
     hand_open_edge_hz: 1/(2π·Σ R·C) of the opened loop, hand_open_nodes those that take 1 % of it or more.
     """
 
@@ -988,8 +988,8 @@ class LoopFacts(Struct, frozen=True):
     lower_phase_margin_deg: float | None
     open_edge_hz: float | None
     unit: str
-    source: str = ""
-    source_return_ratio: float | None = None
+    closing_source: str = ""
+    closing_return_ratio: float | None = None
     ideal_gain: float | None = None
     feedthrough: float | None = None
     closed_gain: float | None = None

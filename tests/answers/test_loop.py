@@ -116,7 +116,7 @@ def test_a_follower_with_a_capacitive_load_has_the_return_ratio_that_a_current_b
 @pytest.mark.parametrize("board", FOUND)
 def test_the_loop_is_found_with_margins_of_ngspice(board: str, engine: Engine) -> None:
     facts = only(review(FIXTURES / board, engine=engine))
-    assert (facts.loop, facts.source) == (FOUND[board][0], f"gm of {FOUND[board][1]}")
+    assert (facts.loop, facts.closing_source) == (FOUND[board][0], f"gm of {FOUND[board][1]}")
     assert facts.found
     assert facts.crossover_simulated_hz == pytest.approx(facts.crossover_hz, rel=WITHIN)
     assert facts.phase_margin_simulated_deg == pytest.approx(facts.phase_margin_deg, rel=WITHIN)
@@ -131,7 +131,7 @@ def test_the_loop_is_found_with_margins_of_ngspice(board: str, engine: Engine) -
 def test_closed_loop_by_the_formula_and_by_hand_is_the_gain(board: str, engine: Engine) -> None:
     found = review(FIXTURES / board, engine=engine)
     facts = only(found)
-    t = facts.source_return_ratio
+    t = facts.closing_return_ratio
     assert t is not None
     assert facts.ideal_gain is not None
     assert facts.feedthrough is not None

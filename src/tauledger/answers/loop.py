@@ -174,8 +174,8 @@ def _with_gains(facts: LoopFacts, numbers: Numbers, place: Place, at_hz: float) 
     ideal, through, t = complex(at.ideal[0]), complex(at.feedthrough[0]), complex(at.return_ratio[0])
     return replace(
         facts,
-        source=source,
-        source_return_ratio=t.real,
+        closing_source=source,
+        closing_return_ratio=t.real,
         ideal_gain=ideal.real if math.isfinite(abs(ideal)) else None,
         feedthrough=through.real,
         closed_gain=complex(at.closed[0]).real if math.isfinite(abs(ideal)) else through.real,

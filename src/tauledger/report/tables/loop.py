@@ -60,13 +60,15 @@ def loop_rows(facts: LoopFacts) -> tuple[tuple[str, str, str], ...]:
 
 def closed_text(facts: LoopFacts) -> tuple[str, ...]:
     """Write H = A∞·T/(1 + T) + A0/(1 + T) with its figures; nothing where it is not defined."""
-    if facts.closed_gain is None or facts.source_return_ratio is None:
+    if facts.closed_gain is None or facts.closing_return_ratio is None:
         return ()
     through = number(facts.feedthrough, facts.unit)
     if facts.ideal_gain is None:
         return (f"T is 0 there: the gain, {number(facts.closed_gain, facts.unit)}, is feedthrough A0 alone",)
-    own = facts.source != facts.where
-    other = f", T of {facts.source} {_plain(facts.source_return_ratio)}, its own resistances in it" if own else ""
+    own = facts.closing_source != facts.where
+    other = (
+        f", T of {facts.closing_source} {_plain(facts.closing_return_ratio)}, its own resistances in it" if own else ""
+    )
     return (
         f"ideal A∞ {number(facts.ideal_gain, facts.unit)}, feedthrough A0 {through}; closed loop A∞·T/(1 + T) + "
         f"A0/(1 + T) = {number(facts.closed_gain, facts.unit)}{other}",
@@ -78,9 +80,9 @@ def hand_text(facts: LoopFacts) -> tuple[str, ...]:
     if facts.hand_return_ratio is None or facts.hand_siemens is None:
         return ()
     first, *others = facts.hand_stages
-    device = facts.source.removeprefix("gm of ")
+    device = facts.closing_source.removeprefix("gm of ")
     product = " · ".join((f"{number(abs(first.hand), 'Ω')} ({first.node})", *map(_factor, others)))
-    exact = facts.source_return_ratio
+    exact = facts.closing_return_ratio
     off = "" if not exact else f" ({move(facts.hand_return_ratio / exact - 1.0)})"
     value = f"{_plain(facts.hand_return_ratio)}{off}"
     return (f"T0 = gm of {device} {number(abs(facts.hand_siemens), 'S')} · {product} = {value}",)
