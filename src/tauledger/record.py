@@ -964,8 +964,8 @@ class LoopFacts(Struct, frozen=True):
     that T alone. crossover: the last |T| = 1 above mid-band; lower_crossover below it. open_edge_hz: −3 dB of T.
     closing_source: for which H = ideal_gain·T/(1 + T) + feedthrough/(1 + T) = closed_gain at at_hz, with
     closing_return_ratio for T; identity_error: largest relative error of that against the network. noise_gain: 1/β of
-    an amplifier, noise_gain_edge_hz its gain-bandwidth product over that. hand_return_ratio: hand_siemens·Π hand of hand_stages.
-    hand_open_edge_hz: 1/(2π·Σ R·C) of the opened loop, hand_open_nodes those that take 1 % of it or more.
+    an amplifier, noise_gain_edge_hz its gain-bandwidth product over that. hand_return_ratio: hand_siemens·Π hand of
+    hand_stages. hand_open_edge_hz: 1/(2π·Σ R·C) of the opened loop, hand_open_nodes those that take 1 % of it or more.
     """
 
     loop: str
