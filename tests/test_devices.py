@@ -11,8 +11,9 @@ import pytest
 from tauledger.cli import main
 from tauledger.engine.client import Engine
 from tauledger.errors import InputError
-from tauledger.pipeline import devices
+from tauledger.pipeline import devices, review
 from tauledger.report.devices import render, to_json
+from tauledger.report.terminal import render as review_page
 
 FIXTURES = Path(__file__).parent.parent / "fixtures"
 PREAMP = FIXTURES / "echo_preamp.cir"
@@ -56,6 +57,13 @@ def test_page_has_a_row_per_device_and_a_note_where_one_does_not_amplify(
     assert max(len(line) for line in text.splitlines()) <= 80
     for symbol in ("I_C", "V_CE", "gm", "gm/I", "r_π", "r_o", "C_π", "C_μ", "f_T"):
         assert symbol in text
+
+
+def test_a_capacitance_that_the_model_splits_is_headed_as_in_the_review(engine: Engine) -> None:
+    """C_mu of the operating point is all of base-collector; the card of the preamplifier gives XCJC."""
+    text = render(devices(PREAMP, engine=engine), unicode=True)
+    assert "C_μ+bx" in text
+    assert "C_μ+bx" in review_page(review(PREAMP, engine=engine), color=False, unicode=True)
 
 
 def test_json_holds_plain_si_numbers_and_names_its_schema(engine: Engine) -> None:

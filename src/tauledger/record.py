@@ -362,12 +362,13 @@ class Figure(Struct, frozen=True):
 
 
 class DeviceFacts(Struct, frozen=True):
-    """One device at its operating point."""
+    """One device at its operating point. c_mu_with_bx: c_mu is C_μ and C_bx together, which the model keeps apart."""
 
     name: str
     kind: str
     region: str
     figures: tuple[Figure, ...]
+    c_mu_with_bx: bool = False
 
 
 class Curves(Struct, frozen=True):

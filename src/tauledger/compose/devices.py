@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from msgspec.structs import replace
+
 from tauledger import __version__
 from tauledger.causes.cause import note_facts
 from tauledger.causes.region import region_note
@@ -46,4 +48,4 @@ def _with_efficiency(facts: DeviceFacts) -> DeviceFacts:
     if EFFICIENCY in value or "gm" not in value or not current:
         return facts
     figure = Figure(EFFICIENCY, value["gm"] / abs(current), figure_unit(EFFICIENCY))
-    return DeviceFacts(facts.name, facts.kind, facts.region, (*facts.figures, figure))
+    return replace(facts, figures=(*facts.figures, figure))

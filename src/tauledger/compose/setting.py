@@ -7,6 +7,7 @@ import re
 from collections.abc import Iterable
 
 import numpy as np
+from msgspec.structs import replace
 from numpy.typing import NDArray
 
 from tauledger.circuit import GROUND, Circuit, fold
@@ -16,10 +17,13 @@ from tauledger.netlist import Netlist, place
 from tauledger.network.solve import Complex, response
 from tauledger.numbers import Numbers
 from tauledger.record import Curves, DeviceFacts, DriveFacts, Figure, LoadFacts, OutputFacts, SourceLine
+from tauledger.simulated import Simulated
+from tauledger.solution import Sweep
 
 # IEC 62368-1 ES1, IEC 61010-1: 60 V d.c. is the limit of what may be touched in dry conditions (from memory).
 HAZARDOUS_VOLT = 60.0
 LINES_FOR_SHARE = 0.01
+MOST_OF_A_RIPPLE = 1500
 LIMITS = 0.005
 WORD = re.compile(r"(?<![\w.])(?:\w+\.)*[rR]\w*(?![\w(.])")
 SOURCES = ("voltage source", "current source")
@@ -74,6 +78,7 @@ def device_facts(devices: Iterable[Device]) -> tuple[DeviceFacts, ...]:
             tuple(
                 Figure(symbol, value, figure_unit(symbol)) for symbol, value in device.figures if math.isfinite(value)
             ),
+            any(part.label == "c_bx" and part.value for part in device.parts),
         )
         for device in devices
         if device.region
@@ -87,15 +92,24 @@ def figure_unit(symbol: str) -> str:
 
 def curves(numbers: Numbers, explanation: Explanation) -> Curves | None:
     """Give the responses over the sweep's frequencies, or over the edge search where nothing was simulated."""
-    simulated = numbers.simulated
-    frequency = simulated.sweep.frequency_hz if simulated is not None else numbers.edges.frequency_hz
+    swept = _drawn(numbers.simulated) if numbers.simulated is not None else None
+    frequency = swept.frequency_hz if swept is not None else numbers.edges.frequency_hz
     if not len(frequency):
         return None
-    sweep = _polar(simulated.sweep.response) if simulated is not None else (None, None)
+    sweep = _polar(swept.response) if swept is not None else (None, None)
     exact = _polar(response(numbers.network, frequency)) if numbers.trusted else (None, None)
     hand = _hand_response(numbers, explanation, frequency)
     by_hand = _polar(hand) if hand is not None else (None, None)
     return Curves(tuple(frequency.tolist()), *sweep, *exact, *by_hand)
+
+
+def _drawn(simulated: Simulated) -> Sweep:
+    """Give the sweep with as much of a line's ripple as a curve can show, its first periods."""
+    ripple = simulated.ripple
+    if ripple is None:
+        return simulated.sweep
+    first = np.argsort(ripple.frequency_hz, kind="stable")[:MOST_OF_A_RIPPLE]
+    return replace(simulated, ripple=Sweep(ripple.frequency_hz[first], ripple.response[first])).all_of_it
 
 
 def source_lines(numbers: Numbers, explanation: Explanation, netlist: Netlist | None) -> tuple[SourceLine, ...]:

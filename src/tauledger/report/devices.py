@@ -7,7 +7,7 @@ import msgspec
 from tauledger.record import DeviceFacts, DevicesTable, Figure
 from tauledger.report.json import finite
 from tauledger.report.layout import STRONG, WARNING, Block, Prose, Row, Section, Table, lay_out
-from tauledger.report.wording import number, symbol
+from tauledger.report.wording import figure_symbols, number
 
 # What stands beside the region; the rest, resistances, capacitances and f_T, in a second table.
 _BIAS = ("i", "v")
@@ -25,8 +25,9 @@ def render(found: DevicesTable, *, unicode: bool, width: int = 80) -> str:
     tables: list[Block] = []
     groups: dict[tuple[str, ...], list[DeviceFacts]] = {}
     for device in found.devices:
-        groups.setdefault(tuple(figure.symbol for figure in device.figures), []).append(device)
-    for symbols, devices in groups.items():
+        groups.setdefault(figure_symbols(device), []).append(device)
+    for devices in groups.values():
+        symbols = tuple(figure.symbol for figure in devices[0].figures)
         bias = [name for name in symbols if name[0] in _BIAS or name in _BESIDE]
         tables.append(_table(devices, bias, with_region=True))
         rest = [name for name in symbols if name not in bias]
@@ -54,9 +55,10 @@ def _figure(figure: Figure) -> str:
 
 def _table(devices: list[DeviceFacts], symbols: list[str], *, with_region: bool) -> Table:
     lead = ("DEVICE", "region") if with_region else ("DEVICE",)
+    heads = dict(zip((figure.symbol for figure in devices[0].figures), figure_symbols(devices[0]), strict=True))
     rows = []
     for device in devices:
         value = {figure.symbol: figure for figure in device.figures}
         first = (f"{device.name} {device.kind}", device.region) if with_region else (device.name,)
         rows.append(Row((*first, *(_figure(value[name]) for name in symbols))))
-    return Table("l" * len(lead) + "r" * len(symbols), (*lead, *map(symbol, symbols)), tuple(rows))
+    return Table("l" * len(lead) + "r" * len(symbols), (*lead, *(heads[name] for name in symbols)), tuple(rows))

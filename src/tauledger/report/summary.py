@@ -52,7 +52,7 @@ def operating_points(review: Review, *, verbose: bool = False) -> Section:
     blocks: list[Block] = []
     groups: dict[tuple[str, ...], list[DeviceFacts]] = {}
     for device in review.devices:
-        groups.setdefault(figure_symbols(device, review.parts), []).append(device)
+        groups.setdefault(figure_symbols(device), []).append(device)
     for symbols, devices in groups.items():
         for start in range(0, max(len(symbols), 1), _FIGURES_A_LINE):
             part = slice(start, start + _FIGURES_A_LINE)

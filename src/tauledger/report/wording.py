@@ -19,7 +19,7 @@ _PART_UNIT |= {"mutual inductance": "H", "line": "s"}
 # A coefficient stands after or before a fraction bar, after a product or a root, or in a phrase; a node of that name
 # does not.
 _COEFFICIENT = re.compile(
-    r"(?<=[/·√])[ab][12]\b|\b[ab][12](?=/(?:[ab][12]\b|\(?2π))|\ba1(?= is the first)"
+    r"(?<=[/·√])[ab][1-9]\b|\b[ab][1-9](?=/(?:[ab][1-9]\b|\(?2π))|\ba1(?= is the first)"
     r"|(?:(?<!nodes )(?<!between )\b(?:a1 and a2|b1 and b2)|(?<=coefficients )(?:a1, a2|b1, b2))\b"
 )
 EDGE = {"f_high": "f_H", "f_low": "f_L"}
@@ -94,15 +94,19 @@ def symbol(label: str) -> str:
     return f"{head}_{tail}"
 
 
-def figure_symbols(device: DeviceFacts, parts: Iterable[PartRow]) -> tuple[str, ...]:
+def figure_symbols(device: DeviceFacts) -> tuple[str, ...]:
     """Write the symbols of a device's figures; where it has C_bx, C_μ of the operating point is the sum of both."""
-    split = any(part.name == f"{device.name}.c_bx" for part in parts)
-    return tuple("C_μ+bx" if split and figure.symbol == "c_mu" else symbol(figure.symbol) for figure in device.figures)
+    return tuple(
+        "C_μ+bx" if device.c_mu_with_bx and figure.symbol == "c_mu" else symbol(figure.symbol)
+        for figure in device.figures
+    )
 
 
 def coefficients(text: str) -> str:
     """Set the coefficients of the denominator apart from nodes of the same name: "1/(2π·b1)" → "1/(2π·b₁)"."""
-    return _COEFFICIENT.sub(lambda found: re.sub(r"(?<=[ab])[12]", lambda k: "₁₂"[int(k.group()) - 1], found[0]), text)
+    return _COEFFICIENT.sub(
+        lambda found: re.sub(r"(?<=[ab])[1-9]", lambda k: "₁₂₃₄₅₆₇₈₉"[int(k.group()) - 1], found[0]), text
+    )
 
 
 def part_title(name: str, owner: str) -> str:

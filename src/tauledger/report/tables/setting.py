@@ -73,7 +73,7 @@ def devices(review: Review) -> tuple[Grid, ...]:
     """Give every device at its operating point, devices with the same figures in one table."""
     groups: dict[tuple[str, ...], list[DeviceFacts]] = {}
     for device in review.devices:
-        groups.setdefault(figure_symbols(device, review.parts), []).append(device)
+        groups.setdefault(figure_symbols(device), []).append(device)
     grids = []
     for symbols, members in groups.items():
         tables = max(1, math.ceil(len(symbols) / FIGURES_A_TABLE))
