@@ -24,6 +24,7 @@ from tauledger.hand.estimate import HandEstimate
 from tauledger.hand.halves import images
 from tauledger.hand.inductors import inductor_rows
 from tauledger.hand.lower import lower_rows, nearest_zero_owner
+from tauledger.hand.lower_poles import with_lower_poles
 from tauledger.hand.methods import methods, weighted_lower, weighted_upper
 from tauledger.hand.poles import HandPole, hand_poles
 from tauledger.hand.stages import stage_rows
@@ -114,7 +115,6 @@ def explain(numbers: Numbers) -> Explanation:
     for combined, is_lower in ((upper, False), (lower, True)):
         if combined is not None:
             effects.update(pole_effects(combined.roots, lower=is_lower))
-    cancelled = np.array([pole.s for pole in numbers.poles.poles if pole.cancelled], dtype=complex)
     return Explanation(
         shares_high=shares_high,
         shares_low=shares_low,
@@ -122,18 +122,29 @@ def explain(numbers: Numbers) -> Explanation:
         open=open_rows,
         short=short_rows,
         hand=hand,
-        hand_poles=hand_poles(
-            poles,
-            cancelled,
-            midband_hz=midband.frequency_hz,
-            upper=upper.coefficients if upper else None,
-            lower=lower.coefficients if lower else None,
-        ),
+        hand_poles=_poles_by_hand(numbers, poles, hand, upper, lower),
         pole_effects=effects,
         causes=find_causes(evidence),
         notes=find_notes(evidence),
         edge_factors=_edge_factors(numbers, hand),
     )
+
+
+def _poles_by_hand(
+    numbers: Numbers, poles: Complex, hand: HandEstimate | None, upper: Combined | None, lower: Combined | None
+) -> tuple[HandPole, ...]:
+    cancelled = [pole.s for pole in numbers.poles.poles if pole.cancelled]
+    told = hand_poles(
+        poles,
+        np.array(cancelled, dtype=complex),
+        midband_hz=numbers.midband.frequency_hz,
+        upper=upper.coefficients if upper else None,
+        lower=lower.coefficients if lower else None,
+    )
+    if hand is None or not hand.lower:
+        return told
+    owners = {pole.s: pole.owners for pole in numbers.poles.poles}
+    return with_lower_poles(told, cancelled, numbers.bands, numbers.devices, hand.lower, owners)
 
 
 def _edge_factors(numbers: Numbers, hand: HandEstimate | None) -> Mapping[tuple[str, str], complex]:

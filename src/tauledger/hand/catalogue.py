@@ -96,6 +96,23 @@ INDUCTORS: tuple[Entry, ...] = (
     ),
 )
 
+LOWER_POLES: tuple[Entry, ...] = (
+    Entry(
+        "poles",
+        "of one capacitor",
+        "f = 1/(2π·R·C), R/(2π·L) of an inductor",
+        "one capacitor owns the pole by 60 % or more; those of higher poles open, those of lower ones short",
+        "Cochrun and Grabel, IEEE Trans. Circuit Theory CT-20(1), 1973, with 1/s for s",
+    ),
+    Entry(
+        "poles",
+        "k-th of the lower edge",
+        "f = a_k/(2π·a_(k−1))",
+        "a factor of 4 or more to the poles on either side",
+        "Cochrun and Grabel, IEEE Trans. Circuit Theory CT-20(1), 1973, with 1/s for s",
+    ),
+)
+
 GLOBAL: tuple[Entry, ...] = (
     Entry(
         "global feedback",
@@ -219,4 +236,4 @@ def entries() -> tuple[Entry, ...]:
     """Give every rule and method, in the order in which a reader needs them."""
     rules = tuple(Entry("looking in", rule.name, rule.formula, rule.valid, rule.source, rule.short) for rule in RULES)
     compensation = tuple(Entry("unity gain", f.name, f.written, f.valid, f.source) for f in FORMULAS)
-    return (*rules, *INDUCTORS, *LOOPS, *CAPACITANCES, *METHODS, *compensation)
+    return (*rules, *INDUCTORS, *LOOPS, *CAPACITANCES, *METHODS, *LOWER_POLES, *compensation)

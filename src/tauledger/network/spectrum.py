@@ -94,8 +94,9 @@ def natural_frequencies(g: Complex | Real, c: Complex | Real, start: float, stop
     found: list[Complex] = []
     low = start
     while low < stop:
-        s = shifted(g, c, low * WINDOW)
         high = min(low * WINDOW * WINDOW, stop)
+        # in the middle of what is asked: far beyond all poles G + σ·C leaves nothing of G but rounding
+        s = shifted(g, c, float(np.sqrt(low * high)))
         found.append(s[(np.abs(s) >= low) & (np.abs(s) < high)])
         low = high
     return np.concatenate(found) if found else np.zeros(0, dtype=complex)
