@@ -131,7 +131,7 @@ def test_all_formats_show_them(reviews: dict[str, Review]) -> None:
     section = next(section for section in document(one).sections if section.key == "impedances")
     assert len(section.blocks) == 3
     for narrow in (False, True):
-        assert "out of v(out), without RL, CL" in impedance_chart(one, narrow=narrow)
+        assert "out of v(out) without RL, CL" in impedance_chart(one, narrow=narrow)
 
 
 @pytest.mark.parametrize(

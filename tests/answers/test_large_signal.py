@@ -58,7 +58,7 @@ def test_a_small_swing_takes_the_cause_away(engine: Engine) -> None:
 
 
 def test_beyond_its_standing_current_a_stage_is_said_to_be_cut_off(engine: Engine) -> None:
-    assert "cut off from 798 mV" in first_limit(reviewed("line_driver.cir", engine))
+    assert "Q2 is cut off from 79" in first_limit(reviewed("line_driver.cir", engine))
     assert "cut off" not in first_limit(reviewed("line_driver.cir", engine, 0.5))
 
 

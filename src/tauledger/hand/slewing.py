@@ -68,6 +68,7 @@ class _Driver(Struct, frozen=True):
     """One transistor that moves a row: its standing current and its signal current in A, by emitter or by collector."""
 
     name: str
+    kind: str
     cell: Transconductor
     standing_a: float
     signal_a: float
@@ -78,9 +79,10 @@ class _Scene(Struct, frozen=True):
     """What all rows are judged by.
 
     at: row by its number, by every node in it. voltage, moving: signal by node of the whole network at mid-band and at
-    f_H (there the currents are those that charge capacitances), V. charge: C·v by
-    row, what flows into its capacitances per rad/s. links: rows joined by resistors, by row.
-    standing: by device, A. active: devices that carry signal into what they are connected to; others are loads.
+    f_H (there the currents are those that charge capacitances), V. charge: C·v by row, what flows into its capacitances
+    per rad/s. links: rows joined by resistors, by row. ending: devices with their output or common terminal there, by
+    row. standing: current by device, A. active: devices that carry signal into what they are connected to; others are
+    loads.
     """
 
     at: Mapping[str, int]
@@ -88,7 +90,7 @@ class _Scene(Struct, frozen=True):
     moving: Mapping[str, complex]
     charge: tuple[complex, ...]
     links: Mapping[int, frozenset[int]]
-    devices: tuple[Device, ...]
+    ending: Mapping[int, tuple[Device, ...]]
     standing: Mapping[str, float]
     active: frozenset[str]
 
@@ -152,6 +154,11 @@ def _scene(bands: Bands, devices: Sequence[Device], rows: Sequence[SignalNode], 
         if a in at and b in at and at[a] != at[b]:
             links.setdefault(at[a], set()).add(at[b])
             links.setdefault(at[b], set()).add(at[a])
+    ending: dict[int, list[Device]] = {}
+    for device in devices:
+        if device.cell is not None:
+            for k in {at[node] for node in (device.cell.output, device.cell.common) if node in at}:
+                ending.setdefault(k, []).append(device)
     return _Scene(
         at=at,
         voltage=voltage,
@@ -160,7 +167,7 @@ def _scene(bands: Bands, devices: Sequence[Device], rows: Sequence[SignalNode], 
             sum((charge[node] for node in {bands.merged[m] for m in row.members} if node in charge), 0j) for row in rows
         ),
         links={k: frozenset(others) for k, others in links.items()},
-        devices=tuple(device for device in devices if device.cell is not None),
+        ending={k: tuple(some) for k, some in ending.items()},
         standing={
             device.name: abs(value) for device in devices for symbol, value in device.figures if symbol in STANDING
         },
@@ -186,7 +193,7 @@ def _active(cells: Sequence[Transconductor], at: Mapping[str, int], moving: Mapp
 def _drivers(k: int, scene: _Scene) -> tuple[_Driver, ...]:
     """Give the transistors that move a row: by the collector, or by the emitter where the base carries signal."""
     found: list[tuple[float, _Driver]] = []
-    for device in scene.devices:
+    for device in scene.ending.get(k, ()):
         cell = device.cell
         assert cell is not None
         by_output, by_common = scene.at.get(cell.output) == k, scene.at.get(cell.common) == k
@@ -200,7 +207,9 @@ def _drivers(k: int, scene: _Scene) -> tuple[_Driver, ...]:
             continue
         pull_a = _signal_a(cell, scene.moving) if by_output else cell.gm * control
         signal_a = _signal_a(cell, scene.voltage)
-        found.append((pull_a, _Driver(device.name, cell, scene.standing[device.name], signal_a, by_common)))
+        found.append(
+            (pull_a, _Driver(device.name, device.kind, cell, scene.standing[device.name], signal_a, by_common))
+        )
     largest, in_band = max((pull for pull, _ in found), default=0.0), max((d.signal_a for _, d in found), default=0.0)
     return tuple(
         driver for pull, driver in found if pull and pull >= DRIVES * largest and driver.signal_a >= REACHED * in_band
@@ -217,7 +226,8 @@ def _delivered(drivers: Sequence[_Driver], scene: _Scene) -> tuple[float, tuple[
     if len(drivers) == 1:
         one = drivers[0]
         if one.follows:
-            alone = not [d for d in scene.devices if d.name != one.name and _same_row(d.cell, one.cell, scene)]
+            row = scene.at[one.cell.common]
+            alone = not [d for d in scene.ending[row] if d.name != one.name and _common_row(d, scene) == row]
             return (one.standing_a, (one.name,)) if alone else None
         limits = [one.standing_a, *_before(one, scene)]
         partner = _partner(one, scene)
@@ -244,12 +254,12 @@ def _before(driver: _Driver, scene: _Scene) -> list[float]:
 
 def _partner(driver: _Driver, scene: _Scene) -> Device | None:
     """Give the other transistor of a pair: of the same kind, its emitter at the same node or joined by resistors."""
-    own = next(device for device in scene.devices if device.name == driver.name)
     meeting = _reached(driver.cell.common, scene)
-    for device in scene.devices:
+    near = {row for one in meeting for row in (one, *scene.links.get(one, ()))}
+    for device in (device for row in sorted(near) for device in scene.ending.get(row, ())):
         cell = device.cell
         assert cell is not None
-        other = device.kind == own.kind and cell.control != driver.cell.control
+        other = device.kind == driver.kind and cell.control != driver.cell.control
         if other and scene.standing.get(device.name) and meeting & _reached(cell.common, scene):
             return device
     return None
@@ -267,12 +277,12 @@ def _mirrors(mirror: _Driver, partner: Device, scene: _Scene) -> bool:
     at = scene.at.get(partner.cell.output)
     if at is None or scene.at.get(mirror.cell.control) != at:
         return False
-    cells = [device.cell for device in scene.devices if device.cell is not None]
+    cells = [device.cell for device in scene.ending.get(at, ()) if device.cell is not None]
     return any(scene.at.get(cell.control) == at == scene.at.get(cell.output) for cell in cells)
 
 
-def _same_row(cell: Transconductor | None, other: Transconductor, scene: _Scene) -> bool:
-    return cell is not None and scene.at.get(cell.common) == scene.at.get(other.common)
+def _common_row(device: Device, scene: _Scene) -> int | None:
+    return None if device.cell is None else scene.at.get(device.cell.common)
 
 
 def _behind(

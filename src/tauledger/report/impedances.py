@@ -8,7 +8,7 @@ from tauledger.record import ImpedanceFacts, Review
 from tauledger.report.layout import Block, Prose, Row, Section, Table
 from tauledger.report.wording import NO_NUMBER, number
 
-SIDES = {"input": "into", "output": "out of"}
+SIDES = {"input": "seen by", "output": "out of"}
 
 
 def impedances(review: Review) -> Section:
@@ -31,8 +31,8 @@ def heads(review: Review) -> tuple[str, ...]:
 
 
 def title(one: ImpedanceFacts) -> str:
-    """Say which impedance it is: "into VIN's side beyond RS", "out of v(out) without CL, RL"."""
-    return f"{SIDES[one.side]} {one.of}, {one.says}" if one.side == "output" else f"seen by {one.of}, {one.says}"
+    """Say which impedance it is: "seen by VIN, beyond RS", "out of v(out), without RL, CL"."""
+    return f"{SIDES[one.side]} {one.of}, {one.says}"
 
 
 def exact(one: ImpedanceFacts) -> tuple[str, ...]:

@@ -5,9 +5,11 @@ from __future__ import annotations
 from tauledger.record import ImpedanceFacts, Review
 from tauledger.report.charts.bode import degree_ticks, hertz_ticks
 from tauledger.report.charts.style import blank, light, styled, to_svg
-from tauledger.report.impedances import title
+from tauledger.report.impedances import SIDES
 from tauledger.report.wording import number
 
+# Two longer ones do not fit beside each other.
+WIDEST_NAME = 40
 COLORS = {"input": "exact", "output": "faster"}
 DASHES = ("-", (0, (5, 2)), (0, (1, 1.4)), (0, (5, 2, 1, 2)))
 
@@ -28,7 +30,7 @@ def impedance_chart(review: Review, *, narrow: bool = False) -> str:
             count[one.side] += 1
             look = {"color": light(COLORS[one.side]), "linewidth": 1.6}
             hz, ohm, deg = _finite(one)
-            upper.plot(hz, ohm, label=title(one), linestyle=dashes, **look)
+            upper.plot(hz, ohm, label=f"{SIDES[one.side]} {one.name}", linestyle=dashes, **look)
             lower.plot(hz, deg, linestyle=dashes, **look)
         upper.set_xscale("log")
         upper.set_yscale("log")
@@ -43,9 +45,8 @@ def impedance_chart(review: Review, *, narrow: bool = False) -> str:
         for axes in (upper, lower):
             axes.grid(axis="both")
             axes.set_axisbelow(True)
-        upper.legend(
-            loc="lower left", bbox_to_anchor=(0.0, 1.0), ncols=1 if narrow else 2, frameon=False, borderpad=0.0
-        )
+        columns = 1 if narrow or max(len(one.name) for one in drawn) > WIDEST_NAME else 2
+        upper.legend(loc="lower left", bbox_to_anchor=(0.0, 1.0), ncols=columns, frameon=False, borderpad=0.0)
         told = "Input and output impedance, size and angle over frequency"
         return to_svg(figure, key="impedance", title=told, narrow=narrow)
 
