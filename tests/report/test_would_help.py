@@ -6,7 +6,8 @@ from msgspec.structs import replace
 
 from report.literal import ECHO_PREAMP
 from tauledger.record import Help, PoleFacts, Review
-from tauledger.report.document import Picture, document
+from tauledger.report.blocks import Picture
+from tauledger.report.document import document
 from tauledger.report.sentences import answers, headline
 from tauledger.report.tables.helps import what_would_help
 from tauledger.report.wording import part_titles

@@ -14,9 +14,10 @@ from typing import TYPE_CHECKING
 from msgspec import Struct
 
 from tauledger.record import Review
+from tauledger.report.blocks import Picture
 from tauledger.report.charts.style import PALETTE
 from tauledger.report.cursor import cursor
-from tauledger.report.document import Document, Picture, document
+from tauledger.report.document import Document, document
 from tauledger.report.layout import BEFORE_A_UNIT
 from tauledger.report.terms import unexplained
 

@@ -6,7 +6,8 @@ import re
 from collections.abc import Iterator
 
 from tauledger.record import Review
-from tauledger.report.document import Folded, Items, Prose, Section, document
+from tauledger.report.blocks import Folded, Items, Prose, Section
+from tauledger.report.document import document
 from tauledger.report.tables.grid import Grid
 from tauledger.report.tables.working import Lines
 from tauledger.report.terms import TERMS
