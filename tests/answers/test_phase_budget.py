@@ -10,7 +10,10 @@ import pytest
 from cells import near
 from compensated import TwoStages, network_of
 from tauledger.asked import Asked
+from tauledger.circuit import Port
+from tauledger.devices.parts import delayed_transconductance
 from tauledger.engine.client import Engine
+from tauledger.network.assemble import Network
 from tauledger.pipeline import review, review_network
 from tauledger.record import PhaseBudget, PhaseRow, Review
 
@@ -106,4 +109,22 @@ def test_an_amplifier_without_a_compensated_stage_has_two_coefficients(engine: E
 
 def test_no_budget_without_a_section_on_unity_gain(engine: Engine) -> None:
     assert review(FIXTURES / "echo_preamp.cir", engine=engine).phase_budget is None
-    assert review(FIXTURES / "tia_pair.cir", engine=engine, asked=Asked(unity=True)).phase_budget is None
+    assert review(FIXTURES / "tia_pair.cir", engine=engine).phase_budget is None
+
+
+def test_what_a_delay_takes_beside_its_all_pass_is_a_row_of_its_own() -> None:
+    """A gm1 that acts 2 ns late turns the phase by ω·τ; the all-pass among the poles and zeros by 2·atan(ω·τ/2)."""
+    late = 2e-9
+    parts = [
+        delayed_transconductance(part.owner, part.nodes[:2], part.nodes[2:], part.value, late)  # type: ignore[arg-type]
+        if part.name == "K2"
+        else part
+        for part in network_of(TwoStages()).parts
+    ]
+    budget = budget_of(review_network(Network.from_parts(parts, output=Port("out"))))
+    plain = budget_of(review_network(network_of(TwoStages())))
+    turn = 2.0 * math.pi * budget.at_hz * late
+    assert budget.at_hz == near(plain.at_hz, rel=1e-9)
+    assert budget.margin_deg == pytest.approx(plain.margin_deg - math.degrees(turn), abs=1e-6)
+    assert budget.rest_deg == pytest.approx(math.degrees(turn - 2.0 * math.atan(turn / 2.0)), abs=1e-6)
+    assert total(budget) == pytest.approx(180.0 - budget.margin_deg, abs=1e-9)

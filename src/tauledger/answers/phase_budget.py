@@ -240,7 +240,7 @@ def _why_margin(off: float, rows: Sequence[PhaseRow]) -> str:
     if abs(off) < SEEN_DEG:
         return ""
     bare = [row.used_deg for row in rows if row.hand_deg is None]
-    told = {f"{len(bare)} without a formula use {_degrees(sum(bare))}": sum(bare)}
+    told = {f"{len(bare)} poles and zeros without a formula use {_degrees(sum(bare))}": sum(bare)}
     for row in rows:
         if row.hand_deg is not None:
             more = row.used_deg - row.hand_deg

@@ -40,7 +40,7 @@ def want_facts(found: Review, subject: Subject, wants: tuple[Want, ...]) -> tupl
 def _answered(found: Review, subject: Subject, want: Want, now: Figures) -> WantFacts:
     figure = now.of(want.quantity)
     if figure is None:
-        raise InputError(f"--want {want.quantity}={want.value:g}: {_reason(now, found)}", "ask for another figure")
+        raise InputError(f"--want {want.quantity}={want.value:g}: {_reason(now, found)}", _instead(now))
     facts = WantFacts(
         quantity=want.quantity,
         unit=QUANTITIES[want.quantity],
@@ -63,6 +63,10 @@ def _reason(now: Figures, found: Review) -> str:
     if found.midband.unit not in ("V/V", "A/A"):
         return f"a gain in {found.midband.unit} does not fall to 1"
     return "the gain does not fall through 1 above mid-band"
+
+
+def _instead(now: Figures) -> str:
+    return "f_h and f_l can be wanted here" if now.stable else "make it stable first: the poles are in the review"
 
 
 def _slack(want: Want, figure: float) -> float | None:

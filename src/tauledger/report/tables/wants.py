@@ -74,13 +74,10 @@ def cells(want: WantFacts, one: Remedy) -> Cells:
 
 def change_text(one: Remedy) -> str:
     """Name a change: "824 Ω (1/gm) in series with CC, and CC"; marks one that is not enough or moves the bias."""
-    told = [
-        f"{number(change.value, change.unit, 3)} (1/gm) in series with {change.beside}"
-        if change.new
-        else f"{part_title(change.name, change.name.partition('.')[0])}{BIAS if one.moves_bias else ''}"
-        for change in one.changes
-    ]
-    return ", and ".join(told) + ("" if one.reaches else ": not enough")
+    put_in = [f"{number(c.value, c.unit, 3)} (1/gm) in series with {c.beside}" for c in one.changes if c.new]
+    moved = [part_title(c.name, c.name.partition(".")[0]) for c in one.changes if not c.new]
+    together = " and ".join(moved) + (BIAS if one.moves_bias else "")
+    return ", and ".join(filter(None, (*put_in, together))) + ("" if one.reaches else ": not enough")
 
 
 def notes(want: WantFacts) -> str:
