@@ -118,6 +118,13 @@ class Estimate(Struct, frozen=True):
     recommended: bool = False
 
 
+class NoMethod(Struct, frozen=True):
+    """Why no method by hand is recommended for one edge ("f_high" or "f_low")."""
+
+    edge: str
+    why: str
+
+
 class Step(Struct, frozen=True):
     """One step from paper to simulation: the estimate after it, the factor by which it moved, and why."""
 
@@ -947,13 +954,17 @@ class LoopEstimate(Struct, frozen=True):
 
 
 class AmplifierFacts(Struct, frozen=True):
-    """An instance by itself, output open, other pins at AC ground: a₀, first pole, a₀·pole, second pole."""
+    """An instance by itself, output open, other pins at AC ground: a₀, first pole, a₀·pole, second pole.
+
+    loaded: taken as it stands instead, its output being one of its inputs; the pole is that of the opened loop.
+    """
 
     name: str
     open_loop_gain: float | None
     first_pole_hz: float | None
     gain_bandwidth_hz: float | None
     second_pole_hz: float | None
+    loaded: bool = False
 
 
 class LoopFacts(Struct, frozen=True):
@@ -1085,6 +1096,7 @@ class Review(Struct, frozen=True):
     loop_curves: tuple[LoopCurve, ...] = ()
     miller: MillerCurves | None = None
     inductors: tuple[InductorFacts, ...] = ()
+    no_method: tuple[NoMethod, ...] = ()
 
 
 DEVICES_SCHEMA = "tauledger.devices/1"

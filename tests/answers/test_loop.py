@@ -39,6 +39,40 @@ CL out 0 47p
 .print ac v(out)
 .end
 """
+AMPLIFIER = """.subckt amp p n o
+RIN p n 1meg
+G1 0 a p n 1m
+RA a 0 100meg
+CA a 0 100p
+G2 0 b a 0 1m
+RB b 0 1k
+CB b 0 50p
+E1 c 0 b 0 1
+RO c o 50
+.ends
+.ac dec 10 1 10meg
+.print ac v(out)
+.end
+"""
+BUFFER = f"""River-level gauge, buffer of the reference
+VIN in 0 AC 1
+RS in p 1k
+XU1 p out out amp
+CL out 0 100p
+RL out 0 2k
+{AMPLIFIER}"""
+IN_A_ROW = f"""River-level gauge, two amplifiers in a row
+VIN in 0 AC 1
+R1 in n1 1k
+R2 n1 o1 10k
+XU1 0 n1 o1 amp
+R3 o1 p2 1k
+C3 p2 0 100p
+XU2 p2 n2 out amp
+R4 n2 0 1k
+R5 n2 out 4k
+RL out 0 2k
+{AMPLIFIER}"""
 FOUND = {
     "mos_gain.cir": ("M1.gate", "M6"),
     "tia_pair.cir": ("Q1.base", "Q1"),
@@ -166,6 +200,42 @@ def test_an_operational_amplifier_is_shown_by_itself_and_with_its_noise_gain(eng
     assert abs(estimates["ideal gain alone"] or 1.0) < 0.001
     assert "elements around the amplifier set f_H" in facts.why[0]
     assert facts.return_ratio_simulated == pytest.approx(facts.return_ratio_real, rel=WITHIN)
+
+
+def reviewed(netlist: str, engine: Engine, folder: Path) -> Review:
+    file = folder / "board.cir"
+    file.write_text(netlist)
+    return review(file, engine=engine)
+
+
+def test_a_buffer_is_faster_than_paper_says_because_of_its_second_pole(engine: Engine, tmp_path: Path) -> None:
+    """1/(2π·1 kΩ·50 pF) = 3.18 MHz is the second pole; the first with a0 = 1e5 makes 1.59 MHz."""
+    found = reviewed(BUFFER, engine, tmp_path)
+    facts = only(found)
+    assert facts.noise_gain == pytest.approx(1.0, rel=2e-3)
+    assert facts.amplifier is not None
+    assert facts.amplifier.loaded
+    assert facts.noise_gain_edge_hz == pytest.approx(1e-3 / (2.0 * np.pi * 100e-12), rel=0.03)
+    by_hand, *_ = facts.estimates
+    assert by_hand.difference is not None
+    assert by_hand.difference < -0.2
+    assert "a second pole is near" in facts.why[0]
+    whole = {one.method: one.difference for one in facts.estimates}["loop alone"]
+    assert whole == pytest.approx(0.0, abs=2e-3)
+
+
+def test_of_two_amplifiers_in_a_row_each_has_its_own_loop(engine: Engine, tmp_path: Path) -> None:
+    first, second = reviewed(IN_A_ROW, engine, tmp_path).loops
+    assert (first.loop, second.loop) == ("XU1", "XU2")
+    assert first.noise_gain == pytest.approx(11.0, rel=2e-3)
+    assert second.noise_gain == pytest.approx(5.0, rel=2e-3)
+    for one in (first, second):
+        assert one.crossover_simulated_hz == pytest.approx(one.crossover_hz, rel=WITHIN)
+        assert one.amplifier is not None
+        assert one.amplifier.second_pole_hz == pytest.approx(1.0 / (2.0 * np.pi * 1e3 * 50e-12), rel=1e-6)
+        assert one.noise_gain_edge_hz == pytest.approx(1.5915e6 / (one.noise_gain or 1.0), rel=1e-3)
+        # f_H of the board is that of neither alone
+        assert one.estimates == ()
 
 
 def test_the_engine_answers_for_the_board_again_afterwards(engine: Engine) -> None:

@@ -36,7 +36,7 @@ from tauledger.network.return_ratio import Opening, asymptotic, checked, return_
 from tauledger.network.solve import Real, on_axis, response
 from tauledger.network.spectrum import pole_frequencies
 from tauledger.numbers import Numbers
-from tauledger.record import LoopCurve, LoopEstimate, LoopFacts, LoopNodeFacts, LoopStageFacts, Review
+from tauledger.record import AmplifierFacts, LoopCurve, LoopEstimate, LoopFacts, LoopNodeFacts, LoopStageFacts, Review
 
 AROUND = np.array([0.97, 0.985, 1.0, 1.015, 1.03])
 CHECKED_AT = np.array([0.1, 1.0, 10.0])
@@ -207,10 +207,18 @@ def _with_hand(facts: LoopFacts, subject: Subject, place: Place, at_hz: float) -
 
 
 def _with_noise_gain(facts: LoopFacts, place: Place, at_hz: float) -> LoopFacts:
-    if place.amplifier is None:
+    """Add what the amplifier is by itself, its noise gain, and the f_H that follows from the two."""
+    one = place.amplifier
+    if one is None:
         return facts
-    own = amplifier(place.amplifier)
-    ratio = noise_gain(place.opening, place.amplifier, at_hz)
+    ratio = noise_gain(place.opening, one, at_hz)
+    if one.output in one.control:
+        # a follower: its output cannot be told from its input, so that it is taken as it stands
+        gain = abs(complex(facts.return_ratio_real, facts.return_ratio_imag)) * (ratio or 1.0)
+        edge = facts.open_edge_hz
+        own = AmplifierFacts(one.name, gain, edge, None if edge is None else gain * edge, None, loaded=True)
+    else:
+        own = amplifier(one)
     predicted = own.gain_bandwidth_hz / ratio if own.gain_bandwidth_hz and ratio else None
     return replace(facts, noise_gain=ratio, amplifier=own, noise_gain_edge_hz=predicted)
 

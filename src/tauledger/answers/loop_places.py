@@ -228,20 +228,27 @@ def _at_instance(numbers: Numbers, network: Network, instance: Instance) -> Plac
         for part in sources
         if set(part.nodes[2:]) <= {*pins, GROUND} and part.nodes[2] != part.nodes[3] and set(part.nodes[2:]) & moved
     ]
-    if len(inputs) != 1:
+    if not inputs:
         told = ", ".join(dict.fromkeys(part.owner.partition("'")[0] for part in sources)) or "none"
         raise InputError(
-            f"--loop {instance.name}: no one source inside is controlled by its inputs", f"sources inside: {told}"
+            f"--loop {instance.name}: no source inside is controlled by its inputs", f"sources inside: {told}"
         )
-    part = inputs[0]
-    owner = part.owner.partition("'")[0]
+    # of several, as of differential and common-mode stages, the loop is closed by the one with the largest T
+    at_hz = numbers.midband.frequency_hz
+    owners = dict.fromkeys(part.owner.partition("'")[0] for part in inputs)
+    owner = max(owners, key=lambda one: abs(_ratio(network, one, at_hz)))
+    part = next(part for part in inputs if part.owner.partition("'")[0] == owner)
     opening = at_source(network, _controlled(network, owner))
     control = (part.nodes[2], part.nodes[3])
-    output = _output_pin(opening, [pin for pin in pins if pin not in control], numbers.midband.frequency_hz)
+    output = _output_pin(opening, pins, at_hz)
     others = tuple(pin for pin in pins if pin not in (*control, output))
     amplifier = Amplifier(instance.name, tuple(inside), control, output, others) if output else None
     where = f"input source {owner.removeprefix(instance.name + '.')} of {instance.name}"
     return Place(instance.name, where, opening, cut_out_of(numbers.circuit, owner), amplifier=amplifier)
+
+
+def _ratio(network: Network, owner: str, at_hz: float) -> complex:
+    return complex(return_ratio(at_source(network, _controlled(network, owner)), on_axis(at_hz))[0])
 
 
 def _moved(network: Network, at_hz: float) -> set[str]:
@@ -251,7 +258,7 @@ def _moved(network: Network, at_hz: float) -> set[str]:
     return {node for node, size in zip(network.unknowns, x, strict=False) if size > least}
 
 
-def _output_pin(opening: Opening, pins: list[str], at_hz: float) -> str:
+def _output_pin(opening: Opening, pins: Iterable[str], at_hz: float) -> str:
     """Name the pin that the source inside moves most."""
     network = opening.network
     driven = solve(replace(network, drive=opening.out.astype(complex)), on_axis(at_hz)).x[0]

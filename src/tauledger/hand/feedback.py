@@ -32,7 +32,7 @@ from tauledger.hand.looking_in import looking_in
 from tauledger.hand.stages import stage_rows
 from tauledger.network.assemble import Network, assemble
 from tauledger.network.bands import classify
-from tauledger.network.midband import find_midband
+from tauledger.network.midband import MidBand
 from tauledger.network.return_ratio import CONTROLLED, VOLTAGE_KINDS, at_source, at_wire, return_ratio
 from tauledger.network.solve import on_axis, response
 
@@ -122,7 +122,7 @@ def hand_loop(network: Network, devices: tuple[Device, ...], owner: str, at_hz: 
     others = tuple(replace(one, cell=None) if one.name == owner else one for one in devices)
     try:
         opened = assemble((*dead.parts, source), port, {**dict.fromkeys(network.amplitudes, 0j), SOURCE: 1.0})
-        bands = classify(opened, find_midband(opened, at_hz=at_hz or None))
+        bands = classify(opened, reference_at(opened, at_hz))
         if not bands.sound or bands.gain_setting:
             return None
         circuit = upper_circuit(bands, others)
@@ -149,6 +149,14 @@ def hand_loop(network: Network, devices: tuple[Device, ...], owner: str, at_hz: 
         stages.append(LoopStage(first.nodes[2], f"inside {owner}, behind r_b", r_pi, inside))
     t0 = -first.value * math.prod(stage.hand for stage in stages)
     return HandLoop(owner, first.value, tuple(stages), t0, -first.value * total)
+
+
+def reference_at(network: Network, at_hz: float) -> MidBand:
+    """Take a frequency that is mid-band of the closed loop for that of a part of it; no plateau is looked for.
+
+    Raises NetworkError where the network has no unique solution there.
+    """
+    return MidBand(at_hz, at_hz, at_hz, complex(response(network, np.array([at_hz]))[0]))
 
 
 def _inner_divider(devices: tuple[Device, ...], network: Network, owner: str) -> float | None:

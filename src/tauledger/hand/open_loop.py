@@ -19,10 +19,9 @@ from tauledger.devices.family import Device, Terminal, Transconductor
 from tauledger.devices.parts import Part, capacitance, conductance, voltage_source
 from tauledger.errors import InputError, NetworkError
 from tauledger.hand.budget import signal_nodes
-from tauledger.hand.feedback import FoundLoop
+from tauledger.hand.feedback import FoundLoop, reference_at
 from tauledger.network.assemble import Network, assemble
 from tauledger.network.bands import classify
-from tauledger.network.midband import find_midband
 from tauledger.network.return_ratio import SERIES, at_wire
 from tauledger.network.solve import on_axis, response
 
@@ -67,7 +66,7 @@ def open_loop(
     moved = tuple(_moved(one, loop.node, cut.far) if one.name == loop.owner else one for one in devices)
     try:
         opened = assemble((*parts, *load, driven), Port(loop.node), {**silent, DRIVE: 1.0})
-        bands = classify(opened, find_midband(opened, at_hz=at_hz or None))
+        bands = classify(opened, reference_at(opened, at_hz))
         if not bands.sound or bands.gain_setting:
             return None
         rows = [row for row in signal_nodes(bands, moved) if row.in_path and not row.second]

@@ -226,8 +226,23 @@ def _control(opening: Opening, s: Complex) -> Complex:
 
 
 def _driven(network: Network, right: Real, s: Complex) -> Complex:
-    """Give Y⁻¹·right at every s, (k, n)."""
-    return solve(replace(network, drive=right.astype(complex)), s).x
+    """Give Y⁻¹·right at every s: (k, n) for one right side (n,), (k, m, n) for several (m, n)."""
+    several = np.atleast_2d(right)
+    found: Complex
+    if network.size > DENSE_LIMIT:
+        answers = [solve(replace(network, drive=one.astype(complex)), s).x for one in several]
+        found = np.asarray(np.stack(answers, axis=1), dtype=np.complex128)
+    else:
+        try:
+            y = admittance(network, np.atleast_1d(s))
+            right_sides = np.broadcast_to(several.T.astype(complex), (len(y), *several.T.shape))
+            found = np.asarray(np.linalg.solve(y, right_sides), dtype=np.complex128)
+        except np.linalg.LinAlgError as error:
+            raise NetworkError("the small-signal network has no unique solution") from error
+        if not np.all(np.isfinite(found)):
+            raise NetworkError("the small-signal network has no finite solution")
+        found = found.transpose(0, 2, 1)
+    return np.asarray(found[:, 0] if right.ndim == 1 else found, dtype=np.complex128)
 
 
 def _wire_rest(opening: Opening, s: Complex) -> Complex:
@@ -235,10 +250,10 @@ def _wire_rest(opening: Opening, s: Complex) -> Complex:
     network = opening.network
     branch, far = network.branch(SERIES), network.index(opening.far)
     near = next(part for part in network.parts if part.owner == SERIES).nodes[1]
-    series = np.zeros(network.size)
-    series[branch] = 1.0
-    across = incidence(network, near, GROUND)
     if far is None:
         raise NetworkError("a wire to ground is cut")
+    series = np.zeros(network.size)
+    series[branch] = 1.0
+    answer = _driven(network, np.stack([series, incidence(network, near, GROUND)]), s)
     # what goes on past the injected current comes through the short, from its far end to the near one
-    return _driven(network, series, s)[:, far] - _driven(network, across, s)[:, branch]
+    return np.asarray(answer[:, 0, far] - answer[:, 1, branch], dtype=np.complex128)

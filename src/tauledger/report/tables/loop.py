@@ -111,11 +111,13 @@ def instance_text(facts: LoopFacts) -> tuple[str, ...]:
     told = [f"open-loop gain {_plain(abs(own.open_loop_gain))} ({20.0 * math.log10(abs(own.open_loop_gain)):.1f} dB)"]
     if own.gain_bandwidth_hz is not None:
         told.append(f"pole {number(own.first_pole_hz, 'Hz')}, gain-bandwidth {number(own.gain_bandwidth_hz, 'Hz')}")
-        second = "no second pole" if own.second_pole_hz is None else f"second pole {number(own.second_pole_hz, 'Hz')}"
-        told.append(second)
+        if not own.loaded:
+            second = own.second_pole_hz
+            told.append("no second pole" if second is None else f"second pole {number(second, 'Hz')}")
     else:
         told.append("no pole")
-    return (f"{own.name} by itself, unloaded: {', '.join(told)}",)
+    how = "as it stands, loaded" if own.loaded else "by itself, unloaded"
+    return (f"{own.name} {how}: {', '.join(told)}",)
 
 
 def noise_text(facts: LoopFacts) -> tuple[str, ...]:
