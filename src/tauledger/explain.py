@@ -25,7 +25,7 @@ from tauledger.hand.halves import images
 from tauledger.hand.inductors import inductor_rows
 from tauledger.hand.lower import lower_rows, nearest_zero_owner
 from tauledger.hand.lower_poles import with_lower_poles
-from tauledger.hand.methods import methods, weighted_lower, weighted_upper
+from tauledger.hand.methods import methods, none_recommended, weighted_lower, weighted_upper
 from tauledger.hand.poles import HandPole, hand_poles
 from tauledger.hand.stages import stage_rows
 from tauledger.hand.steps import lower_steps, upper_steps
@@ -206,6 +206,14 @@ def _by_hand(
     inductors = inductor_rows(bands, devices, constants)
     upper = combine_upper(nodes, upper_poles, upper_zeros, inductors)
     lower = combine_lower(capacitors, lower_poles, lower_zeros)
+    estimates = methods(
+        upper,
+        lower,
+        upper_hz=high,
+        lower_hz=low,
+        upper_weighted_hz=weighted_upper(constants.weighted_sum_s),
+        lower_weighted_hz=weighted_lower(capacitors),
+    )
     hand = HandEstimate(
         nodes=nodes,
         lower=capacitors,
@@ -229,18 +237,12 @@ def _by_hand(
                 lines=(why, of_lines.f_low) if rest is not None else None,
             ),
         ),
-        methods=methods(
-            upper,
-            lower,
-            upper_hz=high,
-            lower_hz=low,
-            upper_weighted_hz=weighted_upper(constants.weighted_sum_s),
-            lower_weighted_hz=weighted_lower(capacitors),
-        ),
+        methods=estimates,
         sigma=upper.sigma,
         hand_f_high_hz=upper.lowest,
         hand_f_low_hz=lower.lowest,
         inductors=inductors,
+        no_method=none_recommended(estimates, upper, lower),
     )
     return hand, upper, lower
 

@@ -13,7 +13,7 @@ import boards
 from by_algebra import evidence, plain_capacitor, plain_node, roots, signal_nodes
 from tauledger.hand.combine import Combined, combine_lower, combine_upper
 from tauledger.hand.estimate import MethodEstimate
-from tauledger.hand.methods import methods, recommended, weighted_lower, weighted_upper
+from tauledger.hand.methods import methods, none_recommended, recommended, weighted_lower, weighted_upper
 from tauledger.network.assemble import Network
 
 NONE = np.empty(0, dtype=complex)
@@ -208,3 +208,39 @@ def test_what_the_conditions_recommend_gives_way_where_it_fails() -> None:
     assert (
         chosen({one.method: one for one in methods(combined, None, upper_hz=combined.all_poles, lower_hz=None)}) == []
     )
+
+
+def why_none(combined: Combined, exact_hz: float | None) -> str:
+    estimates = methods(combined, None, upper_hz=exact_hz, lower_hz=None)
+    reasons = none_recommended(estimates, combined, None)
+    assert bool(reasons) == (not any(row.recommended for row in estimates) and exact_hz is not None)
+    return reasons.get("f_high", "")
+
+
+def test_no_recommendation_carries_its_reason() -> None:
+    zero = of_nodes([1e-6, 1e-9], [-1e6, -1e9], [-1.5e6])
+    assert zero.with_zeros is None or "a zero near the edge moves it" in why_none(zero, zero.with_zeros)
+    near = of_nodes([1e-6, 1e-9], [-1e6, -1e9], [3e6])
+    assert why_none(near, near.with_zeros).startswith("a zero near the edge moves it by +")
+    unstable = of_nodes([1e-6], [1e6])
+    assert why_none(unstable, 1e5) == "a pole lies in the right half plane"
+
+
+def test_a_method_that_is_right_alone_is_so_by_luck() -> None:
+    combined = of_nodes([1e-6, 0.8e-6], [-1e6, -1.25e6])
+    assert combined.lowest is not None
+    told = why_none(combined, 1.02 * combined.lowest)
+    assert "lowest node alone is -2.0 % off by luck" in told
+
+
+def test_what_keeps_every_method_off_is_named_with_the_nearest() -> None:
+    pair = of_nodes([1e-6, 1e-6], [-1e6 + 3e6j, -1e6 - 3e6j])
+    assert pair.two_coefficients is not None
+    told = why_none(pair, 0.5 * pair.two_coefficients)
+    assert told.startswith("the poles are a complex pair (Q = 1.6 from two coefficients)")
+    assert told.endswith("% off")
+
+
+def test_a_recommendation_needs_no_reason() -> None:
+    split = of_nodes([1e-6, 0.5e-6], [-0.67e6, -1e9])
+    assert why_none(split, split.all_poles) == ""

@@ -25,6 +25,7 @@ from tauledger.record import (
     Estimate,
     MidbandFacts,
     NetlistFacts,
+    NoMethod,
     NoteFacts,
     Review,
     Stage,
@@ -91,6 +92,7 @@ def compose(numbers: Numbers, explanation: Explanation, *, netlist: Netlist | No
         cautions=cautions(numbers),
         helps=helps(numbers),
         inductors=inductor_facts(explanation),
+        no_method=tuple(NoMethod(edge, why) for edge, why in (hand.no_method.items() if hand else ())),
     )
 
 

@@ -188,6 +188,7 @@ class HandEstimate(Struct, frozen=True):
     part_resistance: hand resistance across each open capacitance, by part name. sigma: b2 / Σ τ_i τ_j over the
     rows that count.
     hand_f_high_hz, hand_f_low_hz: the classical answers: lowest signal node alone, highest capacitor alone.
+    no_method: why no method is recommended, by edge.
     """
 
     nodes: tuple[SignalNode, ...]
@@ -200,3 +201,4 @@ class HandEstimate(Struct, frozen=True):
     hand_f_high_hz: float | None
     hand_f_low_hz: float | None
     inductors: tuple[InductorRow, ...] = ()
+    no_method: Mapping[Edge, str] = {}

@@ -7,6 +7,9 @@ from collections.abc import Mapping, Sequence
 
 from tauledger.hand.combine import Combined
 from tauledger.hand.estimate import Edge, LowerRow, MethodEstimate
+from tauledger.quantity import percent
+
+Reasons = Mapping[Edge, str]
 
 # Measured over 311 networks: for σ ≤ 1.5 and no zero near the edge the sum of time constants never came out high for
 # f_H; with σ < 0.5 and b1²/b2 > 10 it was 0…14 % low, while between 0.5 and 1.5 all poles by hand were within −3…+14 %.
@@ -17,6 +20,9 @@ ZERO_MATTERS = 0.10
 AS_GOOD = 0.04
 OF_USE = 0.10
 BY_LUCK = 0.05
+UPPER = ("lowest node alone", "all nodes together")
+LOWER = ("highest capacitor alone", "all capacitors together")
+SIMPLEST = ("sum of time constants", "two coefficients", "root of sum of squares", "weighted sum")
 
 
 def methods(
@@ -40,6 +46,25 @@ def methods(
         *_edge("f_high", upper, upper_hz, upper_weighted_hz),
         *_edge("f_low", lower, lower_hz, lower_weighted_hz),
     )
+
+
+def none_recommended(estimates: Sequence[MethodEstimate], upper: Combined | None, lower: Combined | None) -> Reasons:
+    """Give the reason for each edge that has methods and none of them recommended.
+
+    estimates: of `methods`, from the same upper and lower.
+    """
+    found: dict[Edge, str] = {}
+    edges: tuple[tuple[Edge, Combined | None, tuple[str, str]], ...] = (
+        ("f_high", upper, UPPER),
+        ("f_low", lower, LOWER),
+    )
+    for edge, combined, what in edges:
+        told = [row for row in estimates if row.edge == edge]
+        if combined is None or not told or any(row.recommended for row in told):
+            continue
+        _, reason = _choice(combined, what, {row.method: row.hz for row in told[:-2]}, told[-1].hz)
+        found |= {edge: reason} if reason else {}
+    return found
 
 
 def weighted_upper(weighted_sum_s: float) -> float | None:
@@ -89,9 +114,7 @@ def _edge(
 ) -> tuple[MethodEstimate, ...]:
     if combined is None or len(combined.roots.poles) == 0:
         return ()
-    what = ("lowest node alone", "all nodes together")
-    if edge == "f_low":
-        what = ("highest capacitor alone", "all capacitors together")
+    what = UPPER if edge == "f_high" else LOWER
     estimates = (
         (what[0], "", combined.lowest),
         (what[1], "all together", combined.all_nodes),
@@ -102,11 +125,59 @@ def _edge(
         ("all poles", "", combined.all_poles),
         ("exact", "", exact_hz),
     )
-    condition = recommended(combined) if exact_hz is not None else None
-    choice = next((name for name, key, _ in estimates if condition and key == condition), None)
-    if choice is not None and exact_hz is not None:
-        choice = _judged(choice, {name: hz for name, _, hz in estimates}, what[1], exact_hz)
+    choice, _ = _choice(combined, what, {name: hz for name, _, hz in estimates}, exact_hz)
     return tuple(MethodEstimate(edge, name, hz, name == choice) for name, _, hz in estimates)
+
+
+def _choice(
+    combined: Combined, what: tuple[str, str], hz: Mapping[str, float | None], exact_hz: float | None
+) -> tuple[str | None, str]:
+    """Give the recommended method, or None and the reason; no reason where there is no edge to speak of."""
+    if exact_hz is None:
+        return None, ""
+    condition = recommended(combined)
+    if condition is None:
+        return None, _defeated(combined)
+    names = {"all together": what[1]}
+    choice = names.get(condition, condition)
+    judged = _judged(choice, hz, what[1], exact_hz)
+    return judged, "" if judged is not None else _misses(combined, what, hz, exact_hz)
+
+
+def _defeated(combined: Combined) -> str:
+    """Say what no sum of time constants sees: the reason why the conditions recommend nothing."""
+    if not combined.stable:
+        return "a pole lies in the right half plane"
+    if combined.all_poles is None or combined.with_zeros is None:
+        return "with its zeros the response never falls 3 dB, which no time constant sees"
+    moved = combined.with_zeros / combined.all_poles - 1.0
+    return f"a zero near the edge moves it by {percent(moved)}, which no time constant sees"
+
+
+def _misses(combined: Combined, what: tuple[str, str], hz: Mapping[str, float | None], exact_hz: float) -> str:
+    """Say why the method that the conditions ask for is none: by luck another is right, or none comes near."""
+    off = {name: f / exact_hz - 1.0 for name, f in hz.items() if f is not None}
+    alone = what[0]
+    best = min((name for name in off if name in (*SIMPLEST, what[1])), key=lambda name: abs(off[name]))
+    if alone in off and abs(off[alone]) <= OF_USE and abs(off[alone]) < abs(off[best]):
+        return (
+            f"{alone} is {percent(off[alone])} off by luck, its errors cancel; {best}, the nearest that has a reason, "
+            f"is {percent(off[best])} off"
+        )
+    return f"{_why_far(combined)}; {best}, the nearest, is {percent(off[best])} off"
+
+
+def _why_far(combined: Combined) -> str:
+    sigma, poles = combined.sigma, combined.roots.poles
+    if combined.hidden:
+        return "the output does not see all poles"
+    if combined.complex_pair:
+        q = combined.coefficients.q
+        third = " and a third pole counts" if len(poles) > 2 else ""
+        return f"the poles are a complex pair{'' if q is None else f' (Q = {q:.2g} from two coefficients)'}{third}"
+    if sigma is not None and sigma > PULLING:
+        return f"the time constants pull each other (σ = {sigma:.2g})"
+    return f"more than two of {len(poles)} poles count" if len(poles) > 2 else "the zeros count"
 
 
 def _judged(choice: str, hz: Mapping[str, float | None], together: str, exact_hz: float) -> str | None:
@@ -117,7 +188,7 @@ def _judged(choice: str, hz: Mapping[str, float | None], together: str, exact_hz
     recommends, is right by 5 % more: errors cancel there, and no method is to be trusted for it.
     """
     miss = {name: math.inf if f is None else abs(f / exact_hz - 1.0) for name, f in hz.items()}
-    simplest_first = ("sum of time constants", together, "two coefficients", "root of sum of squares", "weighted sum")
+    simplest_first = (SIMPLEST[0], together, *SIMPLEST[1:])
     best = min(miss[name] for name in simplest_first)
     if miss[choice] > best + AS_GOOD:
         choice = next(name for name in simplest_first if miss[name] <= best + AS_GOOD)

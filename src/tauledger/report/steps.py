@@ -22,8 +22,6 @@ _IN_SHORT = {
     "lines": "the lines",
 }
 _CLASSICAL = "sum of time constants"
-_NOT_BY_HAND = ("all poles", "exact", "simulated")
-_OF_USE = 0.10
 
 
 class _Told(Struct, frozen=True):
@@ -70,17 +68,11 @@ def methods(review: Review, edge: str) -> str:
         ),
         key=lambda estimate: estimate.recommended,
     )
-    by_hand = [
-        abs(estimate.difference)
-        for estimate in review.estimates
-        if estimate.edge == edge and estimate.method not in _NOT_BY_HAND and estimate.difference is not None
-    ]
     said = [
         f"{'recommended: ' if estimate.recommended else ''}{estimate.method} {move(estimate.difference)}"
         for estimate in told
     ]
-    if by_hand and min(by_hand) > _OF_USE:
-        said.append("no method by hand comes within 10 %")
+    said += [f"no method recommended: {one.why}" for one in review.no_method if one.edge == edge]
     return "; ".join(said)
 
 
@@ -93,7 +85,8 @@ def methods_table(review: Review, edge: str) -> Section:
         Row((one.method, number(one.hz, "Hz"), move(one.difference), "recommended" if one.recommended else ""))
         for one in told
     )
-    return Section((Table("lrrl", (f"METHODS, {EDGE[edge]}", "f", "off by", ""), rows),))
+    why = tuple(Prose(f"none recommended: {one.why}", lead="  ") for one in review.no_method if one.edge == edge)
+    return Section((Table("lrrl", (f"METHODS, {EDGE[edge]}", "f", "off by", ""), rows), *why))
 
 
 def _steps(review: Review, edge: str) -> list[_Told]:

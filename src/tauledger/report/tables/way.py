@@ -111,7 +111,8 @@ def methods_table(review: Review, edge: str) -> Grid:
     ]
     against = "simulation" if review.engine is not None else "exact value"
     heads = columns("Method", EDGE[edge], f"against the {against}")
-    return Grid(f"Methods for {EDGE[edge]} side by side", heads, tuple(rows))
+    why = " ".join(f"None is recommended: {one.why}." for one in review.no_method if one.edge == edge)
+    return Grid(f"Methods for {EDGE[edge]} side by side", heads, tuple(rows), why)
 
 
 def reruns(review: Review) -> Grid:
