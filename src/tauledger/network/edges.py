@@ -18,6 +18,7 @@ from tauledger.network.ripple import with_ripple
 from tauledger.network.solve import Complex, Real, log_slope, on_axis, response, solve
 from tauledger.network.spectrum import frequency_grid, pole_frequencies, zero_frequencies
 
+RIPPLES_TOLD = 5
 HALF_POWER = 1.0 / np.sqrt(2.0)
 POINTS_PER_DECADE = 60
 SHALLOW_SLOPE = 0.2
@@ -82,18 +83,10 @@ def find_edges(network: Network, midband: MidBand) -> Edges:
     midband: its frequency and gain are the reference; see `at_same_frequency` for a changed network.
     Raises NetworkError where the network has no unique solution.
     """
-    rational = lumped(network)
-    poles = pole_frequencies(rational)
-    zeros = zero_frequencies(rational, poles)
-    reach = frequency_range(poles, zeros)
-    if reach is None:
+    scan = _scan(network, midband)
+    if scan is None:
         return Edges(None, None, np.zeros(0), np.zeros(0, dtype=complex))
-    frequency = frequency_grid(*reach, POINTS_PER_DECADE, np.concatenate([poles, zeros]))
-    frequency = frequency[frequency >= midband.floor_hz]
-    h = response(network, frequency)
-    if network.lines:
-        level = HALF_POWER * abs(midband.gain)
-        frequency, h = with_ripple(network, frequency, h, from_hz=midband.frequency_hz, level=level)
+    frequency, h, poles, zeros = scan
     above, below = _sides(midband, frequency, np.abs(h))
     angle = scanned_angle(midband, frequency, h) if network.lines else Angle(poles, zeros, midband)
     return Edges(
@@ -103,6 +96,40 @@ def find_edges(network: Network, midband: MidBand) -> Edges:
         response=h,
         angle=angle,
     )
+
+
+def first_crossings(network: Network, midband: MidBand) -> tuple[float | None, float | None]:
+    """Give f_L and f_H in Hz alone, those of `find_edges`, without what lies around them.
+
+    Raises NetworkError where the network has no unique solution.
+    """
+    scan = _scan(network, midband)
+    if scan is None:
+        return None, None
+    above, below = _sides(midband, scan[0], np.abs(scan[1]))
+
+    def first(side: _Side) -> float | None:
+        found = [] if _unchanged(side) else _crossings(network, midband, side, HALF_POWER, only_first=True)
+        return found[0] if found else None
+
+    return None if midband.reaches_dc else first(below), first(above)
+
+
+def _scan(network: Network, midband: MidBand) -> tuple[Real, Complex, Complex, Complex] | None:
+    """Give frequency and H (k,), and the poles and zeros that lay the scan out; None for a constant response."""
+    rational = lumped(network)
+    poles = pole_frequencies(rational)
+    zeros = zero_frequencies(rational, poles)
+    reach = frequency_range(poles, zeros)
+    if reach is None:
+        return None
+    frequency = frequency_grid(*reach, POINTS_PER_DECADE, np.concatenate([poles, zeros]))
+    frequency = frequency[frequency >= midband.floor_hz]
+    h = response(network, frequency)
+    if network.lines:
+        level = HALF_POWER * abs(midband.gain)
+        frequency, h = with_ripple(network, frequency, h, from_hz=midband.frequency_hz, level=level)
+    return frequency, h, poles, zeros
 
 
 def at_same_frequency(network: Network, midband: MidBand) -> MidBand:
@@ -121,8 +148,12 @@ def _sides(midband: MidBand, frequency: Real, magnitude: Real) -> tuple[_Side, _
     )
 
 
+def _unchanged(side: _Side) -> bool:
+    return len(side.gain) < 2 or bool(np.all(np.abs(side.gain - 1.0) <= UNCHANGED))
+
+
 def _edge(network: Network, midband: MidBand, side: _Side, angle: Angle) -> Edge | None:
-    if len(side.gain) < 2 or np.all(np.abs(side.gain - 1.0) <= UNCHANGED):
+    if _unchanged(side):
         return None
     crossings = _crossings(network, midband, side, HALF_POWER)
     hz = crossings[0] if crossings else None
@@ -153,9 +184,13 @@ def _edge(network: Network, midband: MidBand, side: _Side, angle: Angle) -> Edge
 def _crossings(
     network: Network, midband: MidBand, side: _Side, level: float, *, only_first: bool = False
 ) -> list[float]:
-    """Give where |H| crosses level·|H_mid|, outwards, in Hz; the first is a fall, the next a rise, and so on."""
+    """Give where |H| crosses level·|H_mid|, outwards, in Hz; the first is a fall, the next a rise, and so on.
+
+    A line's ripple crosses it without end: the first few are given.
+    """
     over = side.gain >= level
-    changes = np.flatnonzero(over[:-1] != over[1:])[: 1 if only_first else None]
+    most = 1 if only_first else RIPPLES_TOLD if network.lines else None
+    changes = np.flatnonzero(over[:-1] != over[1:])[:most]
     return [
         crossing(network, level * abs(midband.gain), float(side.frequency_hz[k]), float(side.frequency_hz[k + 1]))
         for k in changes

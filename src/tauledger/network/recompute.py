@@ -17,7 +17,7 @@ from msgspec.structs import replace
 
 from tauledger.errors import NetworkError
 from tauledger.network.assemble import Network, assemble, without_loose_ends
-from tauledger.network.edges import HALF_POWER, Edges, at_same_frequency, crossing, find_edges
+from tauledger.network.edges import HALF_POWER, Edges, at_same_frequency, crossing, first_crossings
 from tauledger.network.midband import MidBand
 from tauledger.network.reactances import Reactances, reactances
 from tauledger.network.solve import DENSE_LIMIT, MOST_ENTRIES, Complex, Real, admittance, on_axis
@@ -59,11 +59,7 @@ def edge_frequencies(network: Network, midband: MidBand) -> EdgeFrequencies:
 
     Raises NetworkError where the network has no unique solution.
     """
-    edges = find_edges(network, at_same_frequency(network, midband))
-    return EdgeFrequencies(
-        edges.f_low.hz if edges.f_low else None,
-        edges.f_high.hz if edges.f_high else None,
-    )
+    return EdgeFrequencies(*first_crossings(network, at_same_frequency(network, midband)))
 
 
 def each_scaled(network: Network, midband: MidBand, edges: Edges, factor: float) -> dict[str, EdgeFrequencies]:
