@@ -875,7 +875,7 @@ class PhaseBudget(Struct, frozen=True):
 
 
 class WantChange(Struct, frozen=True):
-    """One change of a remedy. name: part; new: it is put in, in series with `beside`. before: None where it is new.
+    """One change of a remedy. name: part, of owner; new: it is put in, in series with `beside`. before: None where new.
 
     value: what it must be, in `unit`, exact. first_order: what the slope alone would say, None where it leads nowhere.
     """
@@ -887,6 +887,7 @@ class WantChange(Struct, frozen=True):
     first_order: float | None = None
     new: bool = False
     beside: str = ""
+    owner: str = ""
 
 
 class Remedy(Struct, frozen=True):
@@ -914,8 +915,8 @@ class Remedy(Struct, frozen=True):
 class WantFacts(Struct, frozen=True):
     """A figure that was wanted (margin, gain_margin, f_u, f_h, f_l) in `unit` (°, dB, Hz) and what it takes.
 
-    now: as the circuit is, None where it has no such figure. met: nothing is to be done; slack: by how much, in `unit`.
-    remedies: what reaches it first.
+    now: as the circuit is, None where it has no end or cannot be known (`says`). met: nothing is to be done; slack: by
+    how much, in `unit`. remedies: what reaches it first.
     """
 
     quantity: str

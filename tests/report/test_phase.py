@@ -41,7 +41,7 @@ BUDGET = PhaseBudget(
 REACHED = Remedy(
     changes=(
         WantChange("RZ", "Ω", None, 823.6, new=True, beside="CC"),
-        WantChange("CC", "F", 2.2e-12, 4.036e-12, 3.96e-12),
+        WantChange("CC", "F", 2.2e-12, 4.036e-12, 3.96e-12, owner="CC"),
     ),
     reaches=True,
     figure=60.0,
@@ -55,7 +55,7 @@ REACHED = Remedy(
 )
 BY_ALGEBRA = replace(
     REACHED,
-    changes=(WantChange("M6.gm", "S", 1.214e-3, 3.647e-3, 3.257e-3),),
+    changes=(WantChange("M6.gm", "S", 1.214e-3, 3.647e-3, 3.257e-3, owner="M6"),),
     simulated_figure=None,
     moves_bias=True,
     says="by algebra alone, all else held",
@@ -165,3 +165,10 @@ def test_a_figure_without_an_end_is_met_and_what_nothing_reaches_says_so() -> No
     none = replace(MARGIN, remedies=(SHORT,), says="no single change of these reaches it")
     assert verdict(none).endswith("missed by 28.5°; no single change of these reaches it")
     assert change_text(SHORT).endswith(": not enough")
+
+
+def test_what_cannot_be_known_is_said_and_a_card_in_a_subcircuit_keeps_its_name() -> None:
+    unknown = replace(MARGIN, now=None, slack=None, says="nothing can be worked out", remedies=())
+    assert verdict(unknown) == "phase margin 60°: nothing can be worked out"
+    inside = replace(REACHED, changes=(WantChange("X1.CC", "F", 2e-12, 4e-12, owner="X1.CC"),))
+    assert change_text(inside) == "X1.CC"

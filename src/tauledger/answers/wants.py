@@ -29,7 +29,10 @@ def want_facts(found: Review, subject: Subject, wants: tuple[Want, ...]) -> tupl
     """
     numbers = subject.numbers
     if not numbers.trusted:
-        raise InputError(f"--want {wants[0].quantity}={wants[0].value:g}: {NOT_TRUSTED}")
+        return tuple(
+            WantFacts(want.quantity, QUANTITIES[want.quantity], want.value, None, False, None, says=NOT_TRUSTED)
+            for want in wants
+        )
     now = figures_of(numbers.network, numbers.midband, chosen=numbers.midband_chosen)
     told = tuple(_answered(found, subject, want, now) for want in wants)
     if subject.engine is not None and numbers.circuit is not None and not all(one.met for one in told):
@@ -100,12 +103,16 @@ def _remedy(outcome: Found, want: Want, subject: Subject) -> Remedy:
     element, series = outcome.trial.element, outcome.trial.series
     changes: list[WantChange] = []
     if series is not None:
-        changes.append(WantChange(series.name, "Ω", None, series.ohm, new=True, beside=series.capacitor))
+        changes.append(
+            WantChange(series.name, "Ω", None, series.ohm, new=True, beside=series.capacitor, owner=series.name)
+        )
     if element is not None:
         first = None if outcome.first_order is None else element.value * outcome.first_order
         for one in (element, outcome.trial.twin):
             if one is not None:
-                changes.append(WantChange(one.name, one.unit, one.value, one.value * outcome.factor, first))
+                changes.append(
+                    WantChange(one.name, one.unit, one.value, one.value * outcome.factor, first, owner=one.owner)
+                )
     figure = figures.of(want.quantity)
     simulated, says = _by_ngspice(outcome, want, subject)
     return Remedy(

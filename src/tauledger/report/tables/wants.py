@@ -39,6 +39,8 @@ def wanted(want: WantFacts) -> str:
 
 def verdict(want: WantFacts) -> str:
     """Say in a line whether the figure is met, and with how much to spare, or by how much it is missed."""
+    if want.now is None and not want.met:
+        return f"{wanted(want)}: {want.says}"
     if want.now is None:
         return f"{wanted(want)}: met, the response has no end there"
     now = f"{wanted(want)}: now {figure(want, want.now)}"
@@ -75,7 +77,7 @@ def cells(want: WantFacts, one: Remedy) -> Cells:
 def change_text(one: Remedy) -> str:
     """Name a change: "824 Ω (1/gm) in series with CC, and CC"; marks one that is not enough or moves the bias."""
     put_in = [f"{number(c.value, c.unit, 3)} (1/gm) in series with {c.beside}" for c in one.changes if c.new]
-    moved = [part_title(c.name, c.name.partition(".")[0]) for c in one.changes if not c.new]
+    moved = [part_title(c.name, c.owner) for c in one.changes if not c.new]
     together = " and ".join(moved) + (BIAS if one.moves_bias else "")
     return ", and ".join(filter(None, (*put_in, together))) + ("" if one.reaches else ": not enough")
 
