@@ -87,18 +87,54 @@ def test_a_choice_in_the_middle_of_another_has_a_note_where_ngspice_gives_anothe
     assert all("a?c?x:y:z" in says for says in _says(circuit))
 
 
-def test_rshunt_is_refused_where_ngspice_loads_nodes_inside_devices(tmp_path: Path) -> None:
+def test_rshunt_is_left_to_ngspice_where_it_loads_nodes_inside_devices(tmp_path: Path) -> None:
     path = tmp_path / "board.cir"
     board = "shunt\n.options rshunt=1meg\nVdd vdd 0 5\nV1 in 0 1.2 AC 1\nRd vdd out 200k\nM1 out in 0 0 mm l=1u w=10u\n"
     path.write_text(f"{board}{RESISTIVE}.print ac v(out)\n")
-    with pytest.raises(NetlistError, match=r"board\.cir:2:10: .*rshunt loads the nodes inside M1") as raised:
+    circuit = elaborate(read(path))
+    (note,) = _says(circuit)
+    assert "ngspice puts one to every node inside a device as well (M1), as here" in note
+    assert circuit.options == (("rshunt", 1e6),)
+    assert circuit.passives.name == ("Rd",)
+    path.write_text(f"{board}{RESISTIVE.replace(' rd=100', '')}.print ac v(out)\n")
+    circuit = elaborate(read(path))
+    (note,) = _says(circuit)
+    assert note.endswith("from every node to ground: Rshunt.<node>")
+    assert circuit.options == ()
+    assert len(circuit.passives.name) == 4
+
+
+def test_rshunt_is_refused_where_the_nodes_inside_are_unknown(tmp_path: Path) -> None:
+    path = tmp_path / "board.cir"
+    path.write_text(
+        "shunt\n.options rshunt=1meg\nV1 in 0 AC 1\nT1 in 0 out 0 z0=50 td=1n\nR1 out 0 50\n.print ac v(out)\n"
+    )
+    with pytest.raises(NetlistError, match=r"board\.cir:2:10: .*rshunt loads the nodes inside T1") as raised:
         elaborate(read(path))
     assert "write resistors" in str(raised.value)
-    (note,) = _says(elaborate(read(path), purpose="reading"))
-    assert "ngspice puts one to every node inside a device as well" in note
-    path.write_text(f"{board}{RESISTIVE.replace(' rd=100', '')}.print ac v(out)\n")
-    (note,) = _says(elaborate(read(path)))
-    assert note.endswith("from every node to ground: Rshunt.<node>")
+
+
+def test_default_geometry_reaches_the_transistors_whose_cards_leave_it_out(tmp_path: Path) -> None:
+    path = tmp_path / "board.cir"
+    path.write_text(
+        "geometry\n.options defl=2u defw=10u defad=20p defas=30p scale=3\nVdd vdd 0 5\nV1 in 0 1.2 AC 1\n"
+        "Rd vdd out 200k\n"
+        "M1 out in 0 0 m1\nM2 out in 0 0 m1 l=1u\nM3 out in 0 0 m8\n.model m1 nmos(level=3 vto=1)\n"
+        ".model m8 nmos(level=8)\n.print ac v(out)\n"
+    )
+    circuit = elaborate(read(path))
+    first, second, third = (dict(element.parameters) for element in circuit.elements if element.letter == "M")
+    assert first == pytest.approx({"l": 2e-6, "w": 10e-6, "ad": 20e-12}, rel=1e-12, abs=0)
+    assert second == pytest.approx({"l": 3e-6, "w": 10e-6, "ad": 20e-12}, rel=1e-12, abs=0)
+    assert third == {}
+    assert any("option defas: ngspice takes it for nothing" in says for says in _says(circuit))
+
+
+def test_an_ac_resistance_of_nothing_is_refused_at_its_value(tmp_path: Path) -> None:
+    path = tmp_path / "board.cir"
+    path.write_text("ac\nV1 in 0 AC 1\nR1 in out 1k ac=0\nR2 out 0 1k\n.print ac v(out)\n")
+    with pytest.raises(NetlistError, match=r"board\.cir:3:17: an AC resistance of 0 Ω"):
+        elaborate(read(path))
 
 
 def test_a_limit_is_told_once(tmp_path: Path) -> None:

@@ -8,6 +8,8 @@ from hypothesis import given, settings
 from msgspec.structs import replace
 
 from strategies import networks
+from tauledger.circuit import Port
+from tauledger.devices.parts import capacitance, resistance, voltage_source
 from tauledger.errors import NetworkError
 from tauledger.network.assemble import Network
 from tauledger.network.bands import classify, find_midband
@@ -78,3 +80,19 @@ def test_a_failing_identity_is_raised_with_both_numbers() -> None:
 
 def test_an_identity_with_a_number_that_is_not_finite_fails() -> None:
     assert not Identity("nothing = one", float("nan"), 1.0, 1e-9, 1.0).holds
+
+
+def test_what_rounding_leaves_of_held_capacitors_is_no_failure() -> None:
+    """A capacitor between two sources has a time constant of nothing, however its rounding comes out."""
+    held = voltage_source("V1", "a", "0", 1.0), voltage_source("V2", "b", "0")
+    parts = (
+        *held,
+        resistance("R1", "a", "out", 1e3),
+        resistance("R2", "out", "0", 3e3),
+        capacitance("C1", "a", "b", 1e-9),
+    )
+    network = Network.from_parts(parts, output=Port("out"))
+    constants = open_constants(classify(network, find_midband(network)))
+    check(open_identities(replace(constants, sum_s=-3.2e-28, b1_s=-3.2e-28)))
+    with pytest.raises(NetworkError, match=r"sum of time constants = -sum of 1/p"):
+        check(open_identities(replace(constants, sum_s=1e-15, b1_s=1e-15)))

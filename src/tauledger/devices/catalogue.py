@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from tauledger.circuit import Circuit, Element, Model
+from tauledger.circuit import GROUND, Circuit, Element, Model
 from tauledger.devices.behavioural import BEHAVIOURAL
 from tauledger.devices.bsim import BSIM3, BSIM4
 from tauledger.devices.controlled import CURRENT_GAIN, TRANSCONDUCTANCE, TRANSRESISTANCE, VOLTAGE_GAIN
@@ -19,7 +19,7 @@ from tauledger.devices.meyer import LEVEL_2 as MOS_2
 from tauledger.devices.meyer import LEVEL_3 as MOS_3
 from tauledger.devices.meyer import LEVEL_6 as MOS_6
 from tauledger.devices.meyer import LEVEL_9 as MOS_9
-from tauledger.devices.parts import Part
+from tauledger.devices.parts import Part, resistance
 from tauledger.devices.passives import CAPACITOR, INDUCTOR, RESISTOR, passive_part
 from tauledger.devices.sources import CURRENT_SOURCE, VOLTAGE_SOURCE
 from tauledger.devices.switches import CURRENT_SWITCH, VOLTAGE_SWITCH
@@ -146,7 +146,23 @@ def linearise(circuit: Circuit, bias: Bias) -> Linearised:
         if device.cell is not None or device.region:
             devices.append(device)
     rows.sort(key=lambda row: row[0])
-    return Linearised(tuple(part for _, parts in rows for part in parts), tuple(devices))
+    found = tuple(part for _, parts in rows for part in parts)
+    return Linearised((*found, *_shunts(circuit, found)), tuple(devices))
+
+
+def _shunts(circuit: Circuit, parts: tuple[Part, ...]) -> tuple[Part, ...]:
+    """Give what `.options rshunt` puts from every node to ground, those behind series resistances included.
+
+    An instance that was measured alone has those of its own inner nodes in its block.
+    """
+    ohm = dict(circuit.options).get("rshunt")
+    if ohm is None:
+        return ()
+    measured = {part.owner for part in parts if part.kind == "block"}
+    devices = {element.name for element in circuit.elements if element.letter in "QDJMZ"} - measured
+    inside = [node for part in parts if part.owner in devices for node in part.nodes if node not in circuit.nodes]
+    nodes = dict.fromkeys((*circuit.nodes[1:], *inside))
+    return tuple(resistance(f"Rshunt.{node}", node, GROUND, ohm) for node in nodes)
 
 
 def _family(circuit: Circuit, element: Element) -> Family:

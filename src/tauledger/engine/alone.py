@@ -184,10 +184,12 @@ def answered(asked: Bench, answer: Message) -> list[Samples]:
         column = [np.concatenate([_column(run, k) for run in runs]) for k in range(sum(counts))]
         columns.append(np.array(column, dtype=complex))
     found: list[Samples] = []
+    shunt_ohm = dict(asked.circuit.options).get("rshunt")
+    shunt_siemens = 0.0 if shunt_ohm is None else 1.0 / shunt_ohm
     first = 0
     for instance, count in zip(asked.instances, counts, strict=True):
         own = [column[first : first + count] for column in columns[: len(instance.sources)]]
-        found.append(samples(instance, frequency, own))
+        found.append(samples(instance, frequency, own, shunt_siemens))
         first += count
     return found
 
@@ -206,11 +208,14 @@ def _column(run: Message, k: int) -> Complex:
     return np.array(values).view(complex)
 
 
-def samples(instance: Alone, frequency_hz: NDArray[np.float64], answers: Sequence[Complex]) -> Samples:
+def samples(
+    instance: Alone, frequency_hz: NDArray[np.float64], answers: Sequence[Complex], shunt_siemens: float = 0.0
+) -> Samples:
     """Put the answers of one instance to unit AC together.
 
     answers: for each driven terminal, then each forced current, the currents through the holders (from the terminal
     into ground) and the inner nodes' voltages, (n_holders + n_inner, n_freq); an inner node that does not exist is NaN.
+    shunt_siemens: what stands from every node to ground.
     """
     isolation, n = instance.isolation, len(instance.terminals)
     driven = np.stack(answers, axis=-1).transpose(1, 0, 2)
@@ -225,6 +230,9 @@ def samples(instance: Alone, frequency_hz: NDArray[np.float64], answers: Sequenc
     admittance = np.full((len(frequency_hz), n, n), np.nan + 0j)
     inner_gain = np.full((len(frequency_hz), len(exists), n), np.nan + 0j)
     admittance[:, :, places] = -driven[:, :n, :count]
+    for place in {*instance.held} & {*places}:
+        # what `.options rshunt` puts at the terminal is no part of the instance; at its inner nodes it is
+        admittance[:, place, place] -= shunt_siemens
     inner_gain[:, :, places] = driven[:, [n + k for k in exists], :count]
     return Samples(
         element=isolation.element,

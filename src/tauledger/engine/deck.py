@@ -22,6 +22,7 @@ TITLE = "generated circuit"
 # Measured: gm is right to 1e-12 from reltol = 1e-5 on, and wrong by 1.7e-3 at ngspice's default of 1e-3.
 TIGHT = (("reltol", 1e-6), ("abstol", 1e-15), ("vntol", 1e-9))
 OPTIONS = {"gmin": 1e-12}
+ACCEPTED = frozenset({*OPTIONS, "rshunt"})
 WITH_BRANCH_CURRENT = ("V", "L", "E", "H")
 CONTROLLED = ("E", "F", "G", "H", "B")
 # Other names that the reader takes for the types of resistors, capacitors and inductors.
@@ -121,7 +122,7 @@ def _letter(element: Element) -> str:
 
 def _options(circuit: Circuit, tight: bool) -> str:
     asked = dict(circuit.options)
-    if unknown := sorted(asked.keys() - OPTIONS.keys()):
+    if unknown := sorted(asked.keys() - ACCEPTED):
         raise EngineError(f"option {unknown[0]} has no place in the engine's deck")
     options = [*(TIGHT if tight else ()), *({**OPTIONS, **asked}).items()]
     options += [("temp", circuit.temperature_c), ("tnom", circuit.tnom_c)]

@@ -19,8 +19,16 @@ from tauledger.netlist.draft import Draft, Row, check_all_used, check_finite, dr
 from tauledger.netlist.flatten import flatten
 from tauledger.netlist.hints import asked, sweep_notes
 from tauledger.netlist.items import Setting, Value, flattened
+from tauledger.netlist.letters import PASSIVES
 from tauledger.netlist.netlist import Netlist
-from tauledger.netlist.options import EFFECTIVE, option_settings, plain_value
+from tauledger.netlist.options import (
+    EFFECTIVE,
+    GEOMETRY,
+    GEOMETRY_LEVELS,
+    WITHOUT_EFFECT,
+    option_settings,
+    plain_value,
+)
 from tauledger.netlist.ports import (
     Chosen,
     Driven,
@@ -100,7 +108,8 @@ def elaborated(
         seen=[],
     )
     flatten(netlist, draft, top, faults)
-    _add_shunts(netlist, draft, scope, settings)
+    to_engine = ("gmin", *_add_shunts(netlist, draft, scope, settings))
+    _default_geometry(draft, settings)
     faults.extend(draft.refusals if purpose == "review" else [])
     if faults:
         raise gather(faults, netlist.files)
@@ -129,7 +138,7 @@ def elaborated(
         output=chosen.port,
         temperature_c=settings["temp"],
         tnom_c=settings["tnom"],
-        options=tuple((name, settings[name]) for name in ("gmin",) if name in settings),
+        options=tuple((name, settings[name]) for name in to_engine if name in settings),
         notes=(),
         nodesets=tuple(draft.nodesets.items()),
     )
@@ -189,13 +198,15 @@ def _settings(netlist: Netlist, change: Change, scope: Scope, faults: list[Diagn
         site = Site(netlist.files, netlist.cards[number])
         for setting in option_settings(site, netlist.items[number]):
             name = fold(setting.name.text)
+            if name in WITHOUT_EFFECT:
+                scope.notes.append(ReadingNote(site.where, f"option {name}: {WITHOUT_EFFECT[name]}"))
             if name not in EFFECTIVE:
                 continue
             try:
                 values[name] = plain_value(site, setting.value, scope)
                 if name == "gmin" and not values[name] >= 0.0:
                     raise site.fault(setting.value, "gmin must be 0 or more")
-                if name in ("scale", "rshunt", "cshunt") and not values[name] > 0.0:
+                if name in ("scale", "rshunt", "cshunt", *GEOMETRY) and not values[name] > 0.0:
                     raise site.fault(setting.value, f"{name} must be greater than 0")
                 if name in ("temp", "tnom"):
                     _check_temperature(site, setting.value, values[name])
@@ -267,29 +278,44 @@ def _currents(draft: Draft) -> dict[str, Port]:
     return found
 
 
-def _add_shunts(netlist: Netlist, draft: Draft, scope: Scope, settings: dict[str, float]) -> None:
-    """Put what `.options rshunt` and cshunt ask for from every node to ground, as elements with names of their own."""
+def _add_shunts(netlist: Netlist, draft: Draft, scope: Scope, settings: dict[str, float]) -> tuple[str, ...]:
+    """Put what `.options rshunt` and cshunt ask for from every node to ground, as elements with names of their own.
+
+    Gives the options that are left to the engine: rshunt where devices have nodes inside, which it loads as well.
+    """
+    left: list[str] = []
     for option, kind, words, unit in (("rshunt", "R", "a resistor", "Ω"), ("cshunt", "C", "a capacitor", "F")):
         if option not in settings:
             continue
-        for number, node in enumerate(draft.nodes[1:], 1):
-            draft.rows.append(Row(kind, f"{kind}shunt.{node}", number, 0, settings[option], ADDED, 0))
         number, setting = _last_of(netlist, option)
         site = Site(netlist.files, netlist.cards[number])
         says = f"{words} of {settings[option]:.6g} {unit} stands from every node to ground: {kind}shunt.<node>"
-        inside = [element.name for element in draft.elements if _has_inner_nodes(draft, element)]
+        inside = [element for element in draft.elements if _has_inner_nodes(draft, element)]
         if option == "rshunt" and inside:
-            says += (
-                "; ngspice puts one to every node inside a device as well, so that a node is loaded twice and more: "
-                f"{visible(inside[0])} has such nodes"
-            )
-            fault = site.fault(
-                setting,
-                f"rshunt loads the nodes inside {visible(inside[0])} too, which is not supported",
-                f"write resistors from the nodes that need them, e.g. Rs1 node 0 {settings[option]:.6g}",
-            )
-            draft.refusals.extend(fault.diagnostics)
+            left.append(option)
+            says += f"; ngspice puts one to every node inside a device as well ({visible(inside[0].name)}), as here"
+            unknown = [element.name for element in inside if element.letter not in "QDJMZ"]
+            if unknown:
+                fault = site.fault(
+                    setting,
+                    f"rshunt loads the nodes inside {visible(unknown[0])} too, which is not supported",
+                    f"write resistors from the nodes that need them, e.g. Rs1 node 0 {settings[option]:.6g}",
+                )
+                draft.refusals.extend(fault.diagnostics)
+        else:
+            for node, name in enumerate(draft.nodes[1:], 1):
+                draft.rows.append(Row(kind, f"{kind}shunt.{name}", node, 0, settings[option], ADDED, 0))
         scope.notes.append(ReadingNote(site.where, says))
+    return tuple(left)
+
+
+def _default_geometry(draft: Draft, settings: dict[str, float]) -> None:
+    """Give transistors what `.options defl`, defw and defad hold for those whose card does not."""
+    given = {name: settings[option] for option, name in GEOMETRY.items() if option in settings}
+    for k, element in enumerate(draft.elements):
+        model = draft.models.get(fold(element.model)) if given and element.letter == "M" else None
+        if model is not None and model.level in GEOMETRY_LEVELS and model.type in ("nmos", "pmos"):
+            draft.elements[k] = replace(element, parameters=tuple({**given, **dict(element.parameters)}.items()))
 
 
 def _last_of(netlist: Netlist, option: str) -> tuple[int, Setting]:
@@ -304,7 +330,12 @@ def _last_of(netlist: Netlist, option: str) -> tuple[int, Setting]:
 
 
 def _has_inner_nodes(draft: Draft, element: Element) -> bool:
-    """Say whether a device may have nodes inside: its model has a resistance, or is none of the simple ones."""
+    """Say whether an element may have nodes inside.
+
+    A line has, an R, C or L given by a formula, and a device whose model has a resistance or is none of the simple ones.
+    """
+    if element.letter in "TO" or (element.letter in PASSIVES and element.formula is not None):
+        return True
     model = draft.models.get(fold(element.model))
     if model is None or element.letter not in "QDJMZ":
         return False

@@ -8,14 +8,15 @@ from tauledger.netlist.items import Group, Item, Setting, Value, Word
 from tauledger.netlist.numbers import read_number
 from tauledger.netlist.scopes import Scope, number_of
 
-EFFECTIVE = frozenset({"temp", "tnom", "gmin", "scale", "rshunt", "cshunt"})
+# What they give to a transistor of these levels whose card does not; others have defaults of their own (measured).
+GEOMETRY = {"defl": "l", "defw": "w", "defad": "ad"}
+GEOMETRY_LEVELS = frozenset({1, 2, 3, 6, 9})
+EFFECTIVE = frozenset({"temp", "tnom", "gmin", "scale", "rshunt", "cshunt", *GEOMETRY})
+# Measured: the reading of AS stays 0 with it.
+WITHOUT_EFFECT = {"defas": "ngspice takes it for nothing: no transistor has the area of its source from it"}
 
 REFUSED = {
     "rseries": "it puts a resistor in series with every inductor",
-    "defl": "it gives transistors their length",
-    "defw": "it gives transistors their width",
-    "defad": "it gives transistors the area of their drain",
-    "defas": "it gives transistors the area of their source",
     "badmos3": "it takes other equations",
 }
 

@@ -56,6 +56,9 @@ def passive(site: Site, card: Fields, letter: str, models: frozenset[str], scope
             parameters |= _coefficients(site, setting, card, scope)
         elif name in NUMBERS[letter]:
             parameters[name] = number_of(site, setting.value, scope)
+            if name == "ac" and parameters[name] == 0.0:
+                message = "an AC resistance of 0 Ω: ngspice's sweep has no numbers then"
+                raise site.fault(setting.value, message, "leave ac out, or give a value other than 0")
         elif name not in READ_PAST[letter]:
             known = {*VALUE_KEYWORDS[letter], *NUMBERS[letter], *READ_PAST[letter], "m", "tc"}
             raise keyword_fault(site, setting, word, known)

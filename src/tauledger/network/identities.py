@@ -25,6 +25,8 @@ SUMS = 1e-9
 # A coupling capacitor of 100 µF is 10⁶ S at a few GHz: rounding alone makes 1e-8 of the currents beside it.
 ON_THE_AXIS = 1e-6
 POLES = 1e-6
+# What rounding leaves of a capacitor between nodes that are held: no time constant of a board is a millionth of a ps.
+HELD_S = 1e-18
 
 
 class Identity(Struct, frozen=True):
@@ -59,7 +61,7 @@ def check(identities: Iterable[Identity]) -> tuple[Identity, ...]:
 
 def open_identities(constants: OpenConstants) -> tuple[Identity, ...]:
     """Σ τ = tr(ZC) = Σ of the node constants = −Σ 1/p of the upper network, and Σ w·τ = group delay at mid-band."""
-    scale = sum(abs(part.time_constant_s) for part in constants.parts)
+    scale = max(sum(abs(part.time_constant_s) for part in constants.parts), HELD_S)
     by_node = sum(constants.node_time_constant_s.values()) + sum(constants.branch_time_constant_s.values())
     weighted = sum(abs(part.delay_s) for part in constants.parts)
     return (
