@@ -332,7 +332,8 @@ def _last_of(netlist: Netlist, option: str) -> tuple[int, Setting]:
 def _has_inner_nodes(draft: Draft, element: Element) -> bool:
     """Say whether an element may have nodes inside.
 
-    A line has, an R, C or L given by a formula, and a device whose model has a resistance or is none of the simple ones.
+    A line has, an R, C or L given by a formula, and a device whose model has a resistance or is none of the simple
+    ones.
     """
     if element.letter in "TO" or (element.letter in PASSIVES and element.formula is not None):
         return True
