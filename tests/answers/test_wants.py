@@ -6,14 +6,18 @@ from pathlib import Path
 
 import numpy as np
 import pytest
+from msgspec.structs import replace
 
 from boards import source_follower
 from cells import near
 from compensated import TwoStages, network_of
+from tauledger.answers.answer import Subject
+from tauledger.answers.wants import want_facts
 from tauledger.asked import Asked, Want
 from tauledger.circuit import NO_CHANGE, Change
 from tauledger.engine.client import Engine
 from tauledger.errors import InputError
+from tauledger.explain import NOTHING
 from tauledger.netlist import read
 from tauledger.pipeline import review, review_network, solve
 from tauledger.record import Remedy, Review, WantFacts
@@ -177,6 +181,44 @@ def test_halves_of_a_balanced_circuit_are_changed_together(engine: Engine) -> No
     assert len(together) == 1
     assert together[0].reaches
     assert together[0].simulated_figure == near(3e6, rel=1e-6)
+
+
+def test_a_compensation_inside_a_subcircuit_is_changed_and_run_too(engine: Engine, tmp_path: Path) -> None:
+    board = tmp_path / "block.cir"
+    board.write_text(
+        """River-level gauge, gain block as a subcircuit
+VIN in 0 AC 1
+RG in 0 1meg
+X1 in out block
+CL out 0 5p
+.subckt block a b
+G1 x 0 a 0 0.6m
+R1 x 0 100k
+C1 x 0 1p
+G2 b 0 x 0 3m
+R2 b 0 50k
+CC x b 2p
+.ends
+.print ac v(out)
+.end
+"""
+    )
+    found = review(board, engine=engine, fold=("none",), asked=wanting(Want("margin", 60.0)))
+    want = want_of(found, "margin")
+    reached = {names(one): one.simulated_figure for one in want.remedies if one.reaches}
+    assert reached[("X1.CC",)] == pytest.approx(60.0, abs=1e-3)
+    assert reached[("RZ", "X1.CC")] == pytest.approx(60.0, abs=1e-3)
+
+
+def test_where_the_network_is_not_trusted_nothing_is_worked_out(engine: Engine) -> None:
+    netlist = read(SERVO)
+    numbers = solve(netlist, NO_CHANGE, engine)
+    assert numbers.agreement is not None
+    off = replace(numbers, agreement=replace(numbers.agreement, max_relative_error=0.5))
+    found = review_network(network_of(TwoStages()))
+    (facts,) = want_facts(found, Subject(off, NOTHING), (Want("margin", 60.0),))
+    assert (facts.now, facts.met, facts.remedies) == (None, False, ())
+    assert "not the simulated circuit" in facts.says
 
 
 @pytest.mark.parametrize(("quantity", "reason"), [("margin", "fall"), ("f_u", "fall"), ("gain_margin", "fall")])
