@@ -15,7 +15,7 @@ from tauledger.pipeline import review
 from tauledger.record import ImpedanceFacts, Review
 from tauledger.report.charts.impedance import impedance_chart
 from tauledger.report.document import document
-from tauledger.report.impedances import impedances, parallel
+from tauledger.report.impedances import impedances, in_series, parallel
 from tauledger.report.layout import lay_out
 
 FIXTURES = Path(__file__).parents[2] / "fixtures"
@@ -132,6 +132,18 @@ def test_all_formats_show_them(reviews: dict[str, Review]) -> None:
     assert len(section.blocks) == 3
     for narrow in (False, True):
         assert "out of v(out) without RL, CL" in impedance_chart(one, narrow=narrow)
+
+
+def test_a_coupling_capacitor_that_still_counts_is_said_in_series(engine: Engine) -> None:
+    """1 µF at 15.7 kHz beside r_e: paper's 8.6 Ω is the series resistance, not that of R ‖ C."""
+    one = review(FIXTURES / "cable_driver.cir", engine=engine, asked=Asked(impedances=True))
+    facts = found(one, "output", "without ")
+    assert facts.hand_ohm == pytest.approx(facts.points[0].real_ohm, rel=0.01)
+    (first, second) = in_series(one)
+    assert "Ω in series with 1.00 µF" in first
+    assert "Ω in series with 999 nF" in second
+    gate = review(FIXTURES / "mos_gain.cir", engine=engine, asked=Asked(impedances=True))
+    assert in_series(gate) == ()
 
 
 @pytest.mark.parametrize(

@@ -78,6 +78,16 @@ def test_a_current_at_the_output_has_no_slew_rate_in_volts(engine: Engine, tmp_p
     assert found.large_signal is None
 
 
+def test_what_moves_a_transmission_line_is_not_judged(engine: Engine, tmp_path: Path) -> None:
+    """A line is no capacitance: its far end is charged by what arrives, not by the follower at once."""
+    lead = "C2 e lead 1u\nL1 lead out 200n"
+    text = (FIXTURES / "cable_driver.cir").read_text(encoding="utf-8")
+    assert lead in text
+    path = tmp_path / "line.cir"
+    path.write_text(text.replace(lead, "C2 e lead 1u\nR9 lead near 50\nT1 near 0 out 0 z0=50 td=20n"), encoding="utf-8")
+    assert review(path, engine=engine).large_signal is None
+
+
 def test_all_formats_tell_it(engine: Engine) -> None:
     found = reviewed("mos_gain.cir", engine)
     plain, verbose = large_signal(found), large_signal(found, verbose=True)

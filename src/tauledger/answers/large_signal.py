@@ -29,7 +29,13 @@ def with_large_signal(found: Review, subject: Subject, swing_v: float | None) ->
     peak = SWING_V if swing_v is None else swing_v
     numbers = subject.numbers
     high = numbers.edges.f_high
-    slews = slewing(numbers.bands, numbers.devices, hand.nodes, f_high_hz=high.hz if high is not None else None)
+    slews = slewing(
+        numbers.bands,
+        numbers.devices,
+        hand.nodes,
+        f_high_hz=high.hz if high is not None else None,
+        lines=frozenset(node for part in numbers.network.parts if part.kind == "line" for node in part.nodes),
+    )
     if not slews.nodes:
         return found
     facts = LargeSignal(

@@ -9,7 +9,7 @@ Source: Solomon, "The monolithic op amp: a tutorial study", IEEE J. Solid-State 
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping, Sequence
+from collections.abc import Collection, Mapping, Sequence
 
 import numpy as np
 from msgspec import Struct
@@ -95,10 +95,18 @@ class _Scene(Struct, frozen=True):
     active: frozenset[str]
 
 
-def slewing(bands: Bands, devices: Sequence[Device], rows: Sequence[SignalNode], *, f_high_hz: float | None) -> Slewing:
+def slewing(
+    bands: Bands,
+    devices: Sequence[Device],
+    rows: Sequence[SignalNode],
+    *,
+    f_high_hz: float | None,
+    lines: Collection[str] = (),
+) -> Slewing:
     """Judge every row that counts and that a transistor with a known standing current moves; the output is a voltage.
 
-    f_high_hz: where it is looked at which transistors bring the current, None where there is no f_H.
+    f_high_hz: where it is looked at which transistors bring the current, None where there is no f_H. lines: nodes at
+    which a transmission line ends; it is no capacitance, so that what moves it is not judged.
     Raises NetworkError where the network has no solution at mid-band.
     """
     scene = _scene(bands, devices, rows, f_high_hz or bands.midband.frequency_hz)
@@ -110,8 +118,9 @@ def slewing(bands: Bands, devices: Sequence[Device], rows: Sequence[SignalNode],
         if not row.in_path or row.second or k not in drivers:
             continue
         behind = _behind(k, rows, scene, drivers)
+        moved = {k, *(behind or ())}
         current = _delivered(drivers[k], scene)
-        if behind is None or current is None:
+        if behind is None or current is None or moved & {scene.at[node] for node in lines if node in scene.at}:
             not_judged.append(row.title)
             continue
         size = abs(scene.voltage[row.members[0]])

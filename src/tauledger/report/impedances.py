@@ -8,6 +8,10 @@ from tauledger.record import ImpedanceFacts, Review
 from tauledger.report.layout import Block, Prose, Row, Section, Table
 from tauledger.report.wording import NO_NUMBER, number
 
+# R of R ‖ C above R of the series form.
+WORTH_SAYING = 1.1
+# Beyond this reactance over resistance it is the capacitance of an input, and no coupling.
+MOSTLY_CAPACITOR = 3.0
 SIDES = {"input": "seen by", "output": "out of"}
 
 
@@ -21,8 +25,24 @@ def impedances(review: Review) -> Section:
         if any(simulated(one)):
             rows.append(Row(("  simulated", *simulated(one), "")))
     blocks: list[Block] = [Table("l" + "r" * len(heads(review)), ("IMPEDANCES", *heads(review)), tuple(rows))]
+    blocks.extend(Prose(text, lead="  ", hang=4) for text in in_series(review))
     blocks.extend(Prose(one.hand_text, lead="  ", hang=4) for one in review.impedances if one.hand_text)
     return Section(tuple(blocks), major=True)
+
+
+def in_series(review: Review) -> tuple[str, ...]:
+    """Say R and C in series where at mid-band a coupling capacitor still counts: paper takes it as a short."""
+    told = []
+    for one in review.impedances:
+        at = one.points[0]
+        if at.real_ohm is None or at.imag_ohm is None or at.parallel_ohm is None:
+            continue
+        counts = at.parallel_ohm > WORTH_SAYING * at.real_ohm and -at.imag_ohm < MOSTLY_CAPACITOR * at.real_ohm
+        if at.imag_ohm < 0.0 < at.real_ohm and counts:
+            farad = -1.0 / (2.0 * math.pi * at.hz * at.imag_ohm)
+            series = f"{number(at.real_ohm, 'Ω')} in series with {number(farad, 'F', 3)}"
+            told.append(f"{title(one)}: at mid-band the same as {series}")
+    return tuple(told)
 
 
 def heads(review: Review) -> tuple[str, ...]:

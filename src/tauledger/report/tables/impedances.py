@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from tauledger.record import Review
-from tauledger.report.impedances import exact, heads, simulated, title
+from tauledger.report.impedances import exact, heads, in_series, simulated, title
 from tauledger.report.tables.grid import Grid, GridRow, columns
 from tauledger.report.wording import number
 
@@ -16,6 +16,8 @@ def impedances(review: Review) -> Grid:
         if any(simulated(one)):
             rows.append(GridRow(("simulated", *simulated(one), ""), "part"))
     note = "A resistance in parallel with a capacitance, or with an inductance where the current lags."
+    for text in in_series(review):
+        note += f" {text[:1].upper()}{text[1:]}."
     return Grid(
         "Input and output impedance, exact and simulated", columns("Impedance", *heads(review)), tuple(rows), note
     )
