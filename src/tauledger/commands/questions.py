@@ -13,7 +13,7 @@ from tauledger.commands.console import hertz
 from tauledger.errors import ExitCode, InputError
 
 if TYPE_CHECKING:
-    from tauledger.asked import MeasuredCurve
+    from tauledger.asked import MeasuredCurve, Want
 
 Command = Callable[..., ExitCode]
 
@@ -52,7 +52,6 @@ def questions(command: Command) -> Command:
         **others: object,
     ) -> ExitCode:
         from tauledger.asked import Asked
-        from tauledger.commands.wanted import wanted
 
         asked = Asked(
             at_hz=tuple(hertz("--at", given) for given in at),
@@ -62,13 +61,19 @@ def questions(command: Command) -> Command:
             swing_v=None if swing is None else _volt(swing),
             curve=None if curve is None else _measured(curve),
             loops=loop,
-            wants=wanted(want),
+            wants=_wanted(want) if want else (),
         )
         return command(asked=asked, **others)
 
     for option in reversed(_OPTIONS):
         asking = option(asking)
     return asking
+
+
+def _wanted(given: tuple[str, ...]) -> tuple[Want, ...]:
+    from tauledger.commands.wanted import wanted
+
+    return wanted(given)
 
 
 def _volt(given: str) -> float:
