@@ -16,12 +16,19 @@ from numpy.typing import NDArray
 
 from tauledger.circuit import GROUND
 from tauledger.errors import NetworkError
-from tauledger.hand.combine import first_fall
+from tauledger.hand.combine import (
+    coefficients,
+    first_fall,
+    root_sum_of_squares_edge,
+    two_pole_edge,
+    visible_roots,
+)
 from tauledger.hand.estimate import HandEstimate, InnerLine, MillerTerm, SignalNode
 from tauledger.hand.halves import counted, images
 from tauledger.network.assemble import Network, assemble
 from tauledger.network.bands import Bands
 from tauledger.network.lower import short_constants
+from tauledger.network.spectrum import pole_frequencies, zero_frequencies
 
 FAR_END = "1 + 1/|A|"
 
@@ -103,10 +110,44 @@ def work(
     opposite = images(hand.nodes) if halves else {}
     farad = {part.name: part.value for part in changed.network.parts}
     nodes = {row.name: _node(row, changed, z, gain, opposite, farad, factor) for row in hand.nodes}
-    edges = _upper_edges([nodes[row.name].time_constant for row in counted(hand.nodes).rows])
+    taus = [nodes[row.name].time_constant for row in counted(hand.nodes).rows]
+    more = 0.0
+    if factor is not miller_factor:
+        plain = [_node(row, changed, z, gain, opposite, farad, miller_factor) for row in counted(hand.nodes).rows]
+        more = math.fsum(taus) - math.fsum(one.time_constant for one in plain)
+    edges = _upper_edges([*taus, *(row.time_constant_s for row in hand.inductors if row.in_path)])
     wanted = {name for row in hand.lower if row.in_path for name in row.parts}
     edges |= _lower_edges([part.edge_hz for part in shorts.parts if wanted.intersection(part.names)])
-    return Worked(nodes, gain, edges)
+    return Worked(nodes, gain, edges | _by_coefficients(changed, more))
+
+
+def _by_coefficients(bands: Bands, more_s: float) -> dict[tuple[str, str], float]:
+    """Give both edges from two coefficients, and by root-sum-of-squares, of the changed networks.
+
+    more_s: what slips in Miller's factors add to b1; b2 and the poles do not know of it.
+    """
+    found: dict[tuple[str, str], float | None] = {}
+    try:
+        poles, lower_poles = pole_frequencies(bands.upper), pole_frequencies(bands.lower)
+        zeros, lower_zeros = zero_frequencies(bands.upper, poles), zero_frequencies(bands.lower, lower_poles)
+    except NetworkError:
+        return {}
+    upper, lower = visible_roots(poles, zeros), visible_roots(lower_poles, lower_zeros)
+    if len(upper.poles) > 1:
+        pair = coefficients(upper.poles)
+        found["f_high", "two coefficients"] = two_pole_edge(pair.b1 + more_s, pair.b2)
+        if not more_s:
+            found["f_high", "root of sum of squares"] = root_sum_of_squares_edge(upper.poles, upper.zeros)
+    moving = lower.poles[lower.poles != 0.0]
+    if len(moving) > 1 and not more_s:
+        pair = coefficients(1.0 / moving)
+        squares = root_sum_of_squares_edge(1.0 / moving, 1.0 / lower.zeros[lower.zeros != 0.0])
+        for method, omega in (
+            ("two coefficients", two_pole_edge(pair.b1, pair.b2)),
+            ("root of sum of squares", squares),
+        ):
+            found["f_low", method] = 1.0 / omega if omega else None
+    return {key: omega / (2.0 * math.pi) for key, omega in found.items() if omega}
 
 
 def bridging(row: SignalNode) -> tuple[InnerLine, MillerTerm] | None:

@@ -77,32 +77,31 @@ def compare(page: Page, subject: Subject) -> tuple[PaperFigure, ...]:
     Raises NetlistError, with the place on the page, for a node, device or figure that this circuit does not have.
     """
     beside = [_beside(page, claim, subject) for claim in page.claims]
-    right = [_agrees(claim, at) for claim, at in zip(page.claims, beside, strict=True)]
-    worked = () if all(right) else _worked(subject)
+    said = [_said(claim, at, subject) for claim, at in zip(page.claims, beside, strict=True)]
+    # every slip works the circuit once more: only for a figure that nothing else explains
+    worked = _worked(subject) if "" in said else ()
     return tuple(
-        _figure(claim, at, subject, worked, agrees=agrees)
-        for claim, at, agrees in zip(page.claims, beside, right, strict=True)
+        _figure(claim, at, subject, worked, says) for claim, at, says in zip(page.claims, beside, said, strict=True)
     )
 
 
-def _figure(
-    claim: Claim, beside: Beside, subject: Subject, worked: Sequence[SlipWorked], *, agrees: bool
-) -> PaperFigure:
+def _said(claim: Claim, beside: Beside, subject: Subject) -> str:
+    """Say what is to be said of a figure without any slip; empty where it takes one."""
+    if not (beside.exact if beside.exact is not None else beside.hand):
+        return "there is nothing to set beside it"
+    if _agrees(claim, beside):
+        return "agrees within 2 %"
+    return (
+        _method(claim, subject) or _by_hand(claim, beside) or _elsewhere(claim, subject) or _plain_sum(claim, subject)
+    )
+
+
+def _figure(claim: Claim, beside: Beside, subject: Subject, worked: Sequence[SlipWorked], says: str) -> PaperFigure:
     reference = beside.exact if beside.exact is not None else beside.hand
     off = None if not reference else _size(claim) / _matching(claim, reference) - 1.0
-    slip, value, says = "", None, ""
-    if not reference:
-        says = "there is nothing to set beside it"
-    elif agrees:
-        says = "agrees within 2 %"
-    else:
-        method = (
-            _method(claim, subject)
-            or _by_hand(claim, beside)
-            or _elsewhere(claim, subject)
-            or _plain_sum(claim, subject)
-        )
-        slip, value, says = ("", None, method) if method else _named(claim, beside, subject, worked)
+    slip, value = "", None
+    if not says:
+        slip, value, says = _named(claim, beside, subject, worked)
     return PaperFigure(
         where=claim.name,
         key=claim.key,
