@@ -17,7 +17,7 @@ from tauledger.circuit import Change, Circuit
 from tauledger.devices.catalogue import linearise
 from tauledger.devices.family import Device, Linearised
 from tauledger.engine.client import Engine
-from tauledger.engine.grid import decades, evenly
+from tauledger.engine.grid import decades
 from tauledger.errors import ElementError
 from tauledger.netlist import Netlist, ac_range, at_element, elaborate
 from tauledger.network.agreement import Agreement, agreement
@@ -27,6 +27,7 @@ from tauledger.network.edges import Edges, find_edges
 from tauledger.network.midband import MidBand, find_midband, frequency_range
 from tauledger.network.poles import PoleZeroMap, find_poles
 from tauledger.network.recompute import EdgeFrequencies, edge_frequencies, scaled
+from tauledger.network.ripple import ripple_grids
 from tauledger.network.solve import Complex, response
 from tauledger.network.transformers import drawn_out
 from tauledger.network.unity import is_ratio
@@ -34,7 +35,6 @@ from tauledger.simulated import Simulated, simulate
 from tauledger.solution import Bias
 
 POINTS_PER_DECADE = 40
-AROUND = 33
 # Beyond this only the rounding of ngspice is left to see; f_H itself may lie higher.
 HIGHEST_HZ = 1e12
 # Agreement above this: the rebuilt network is not the simulated circuit, and nothing that rests on it is given.
@@ -93,7 +93,9 @@ def solve(
     network = Network.from_parts(linearised.parts, output=circuit.output)
     numbers = solve_network(network, devices=linearised.devices, midband_hz=midband_hz)
     grid = _sweep_grid(numbers, ac_range(netlist))
-    simulated = simulate(engine.sweep, grid, midband=numbers.midband, ripple_hz=_ripple_grids(numbers, grid))
+    high = numbers.edges.f_high
+    ripple_hz = ripple_grids(network, high.hz if high is not None else None, float(grid[-1]))
+    simulated = simulate(engine.sweep, grid, midband=numbers.midband, ripple_hz=ripple_hz)
     swept = simulated.all_of_it
     exact = response(network, swept.frequency_hz)
     agreed = agreement(swept.frequency_hz, exact, swept.response, numbers.midband.gain)
@@ -173,23 +175,3 @@ def _sweep_grid(numbers: Numbers, asked: tuple[float, float] | None) -> NDArray[
     if asked is not None:
         start, stop = min(start, asked[0]), max(stop, asked[1])
     return decades(start, max(stop, 10.0 * start), POINTS_PER_DECADE)
-
-
-def _ripple_grids(numbers: Numbers, grid: NDArray[np.float64]) -> tuple[NDArray[np.float64], ...]:
-    """Lay out what the sweep's grid (n,) misses of a line's ripple: evenly up to f_H, and closely around it."""
-    if not numbers.network.lines:
-        return ()
-    from tauledger.network.ripple import MOST_POINTS, spacing_hz
-
-    spacing, high = spacing_hz(numbers.network), numbers.edges.f_high
-    if spacing is None:
-        return ()
-    low = spacing * POINTS_PER_DECADE / np.log(10.0)
-    stop = float(grid[-1])
-    around: tuple[NDArray[np.float64], ...] = ()
-    if high is not None and high.hz is not None:
-        stop = min(stop, high.hz + 2.0 * spacing)
-        if high.hz > low:
-            around = (evenly(high.hz - spacing, high.hz + spacing, AROUND),)
-    count = min(int((stop - low) / spacing) + 1, MOST_POINTS)
-    return around if count < AROUND else (evenly(low, low + (count - 1) * spacing, count), *around)

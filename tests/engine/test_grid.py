@@ -75,3 +75,13 @@ def test_single_frequencies_are_exact_and_keep_their_order(engine: Engine) -> No
     sweep = engine.sweep(asked)
     assert np.allclose(sweep.frequency_hz, asked, rtol=2e-16, atol=0.0)
     assert np.allclose(sweep.response, 1.0 / (1.0 + 2j * np.pi * asked * 1e-6), rtol=1e-14)
+
+
+@settings(derandomize=True, max_examples=12, deadline=None)
+@given(st.floats(1.0, 1e6), st.floats(1.5, 1e4), st.integers(16, 3000))
+def test_a_long_list_that_is_evenly_spaced_is_one_run(engine: Engine, start: float, ratio: float, count: int) -> None:
+    circuit = board("V1 in 0 0", "R1 in out 1k", "C1 out 0 1n", drive={"V1": 1.0})
+    engine.bias(circuit, observations(circuit))
+    even = np.linspace(start, ratio * start, count)
+    assert len(plan(even)) == 1
+    assert np.allclose(engine.sweep(even).frequency_hz, even, rtol=1e-12)

@@ -17,6 +17,7 @@ from tauledger.netlist.ports import port_of
 from tauledger.network.assemble import Network
 from tauledger.network.edges import Edges, find_edges
 from tauledger.network.midband import MidBand, find_midband
+from tauledger.network.ripple import ripple_grids
 from tauledger.network.solve import on_axis, solve
 from tauledger.numbers import POINTS_PER_DECADE, Numbers
 from tauledger.record import OutputRow
@@ -80,7 +81,9 @@ def _simulated(subject: Subject, circuit: Circuit, midband: MidBand, edges: Edge
     if subject.engine is None:
         return None
     subject.engine.bias(circuit, ())
-    return simulate(subject.engine.sweep, _grid(subject.numbers, edges), midband=midband)
+    grid, high = _grid(subject.numbers, edges), edges.f_high
+    ripple_hz = ripple_grids(subject.numbers.network, high.hz if high is not None else None, float(grid[-1]))
+    return simulate(subject.engine.sweep, grid, midband=midband, ripple_hz=ripple_hz)
 
 
 def _grid(numbers: Numbers, edges: Edges) -> np.ndarray[tuple[int], np.dtype[np.float64]]:

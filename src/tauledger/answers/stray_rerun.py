@@ -10,6 +10,7 @@ from tauledger.answers.stray import Target, decibels, rms_db
 from tauledger.circuit import ADDED, GROUND, Circuit, fold
 from tauledger.engine.client import Engine
 from tauledger.network.added import places, response_with
+from tauledger.network.ripple import ripple_grids
 from tauledger.network.solve import Real
 from tauledger.numbers import Numbers
 from tauledger.record import StrayFacts
@@ -25,7 +26,9 @@ def proven(stray: StrayFacts, target: Target, numbers: Numbers, engine: Engine |
         return replace(stray, rms_db=rms_db(target, curve)), curve
     engine.bias(with_capacitor(circuit, stray.plus, stray.minus, stray.capacitance_f), ())
     curve = decibels(engine.sweep(target.frequency_hz).response)
-    again = simulate(engine.sweep, numbers.simulated.sweep.frequency_hz, midband=numbers.midband)
+    grid = numbers.simulated.sweep.frequency_hz
+    ripple_hz = ripple_grids(numbers.network, numbers.simulated.f_high_hz, float(grid[-1]))
+    again = simulate(engine.sweep, grid, midband=numbers.midband, ripple_hz=ripple_hz)
     engine.bias(circuit, ())
     return replace(stray, rms_db=rms_db(target, curve), f_high_rerun_hz=again.f_high_hz, rerun=True), curve
 

@@ -217,9 +217,9 @@ class Engine:
     def sweep(self, frequency_hz: NDArray[np.float64] | Sequence[float]) -> Sweep:
         """Solve the AC response of the loaded circuit's output at these frequencies (n_freq,) in Hz, in their order.
 
-        Any list will do. One that `grid.decades` or `grid.evenly` laid out is a single run; any other is one run per
-        frequency, exact at the frequency asked. The sweep holds the engine's own frequencies, equal to those asked
-        within 1e-9.
+        Any list will do. One that `grid.decades` laid out is a single run, and so is a long one that is evenly
+        spaced; any other is one run per frequency, exact at the frequency asked. The sweep holds the engine's own
+        frequencies, equal to those asked within 1e-9.
         Raises EngineError, EngineTimeout; ValueError where a frequency is not above zero or no circuit is loaded.
         """
         import numpy as np

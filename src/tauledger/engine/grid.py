@@ -35,11 +35,6 @@ def decades(start_hz: float, stop_hz: float, points: int) -> NDArray[np.float64]
     return np.geomspace(start_hz, stop_hz, steps + 1)
 
 
-def evenly(start_hz: float, stop_hz: float, count: int) -> NDArray[np.float64]:
-    """Give `count` evenly spaced frequencies (n,) in Hz, both ends included; from 16 on one run of the engine."""
-    return np.linspace(start_hz, stop_hz, count)
-
-
 def plan(frequency_hz: NDArray[np.float64]) -> tuple[Grid, ...]:
     """Give the AC runs that answer these frequencies (n,) in their order.
 

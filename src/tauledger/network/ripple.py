@@ -14,6 +14,9 @@ from tauledger.network.lines import delay_of_waves
 from tauledger.network.solve import Complex, Real, response
 
 PER_PERIOD = 24
+# What an even logarithmic sweep has beside it.
+SWEPT_PER_DECADE = 40
+AROUND = 33
 CLOSER = 17
 # Beyond the frequency where |H| has fallen, so many times as far.
 BEYOND = 2.0
@@ -63,6 +66,25 @@ def with_ripple(
     followed = [np.concatenate(both) for both in zip(*pieces, strict=True)]
     closer = _closer(network, followed[0], followed[1], level)
     return _merged((frequency_hz, h), (followed[0], followed[1]), closer)
+
+
+def ripple_grids(network: Network, f_high_hz: float | None, stop_hz: float) -> tuple[Real, ...]:
+    """Lay out what a sweep of 40 frequencies a decade misses of a ripple: evenly up to f_H, and closely around it.
+
+    f_high_hz: the exact one, None where there is none; then the ripple is followed up to stop_hz. Each lot is evenly
+    spaced, in Hz; none without lines that reflect.
+    """
+    spacing = spacing_hz(network)
+    if spacing is None:
+        return ()
+    low = spacing * SWEPT_PER_DECADE / np.log(10.0)
+    around: tuple[Real, ...] = ()
+    if f_high_hz is not None:
+        stop_hz = min(stop_hz, f_high_hz + 2.0 * spacing)
+        if f_high_hz > low:
+            around = (np.linspace(f_high_hz - spacing, f_high_hz + spacing, AROUND),)
+    count = min(int((stop_hz - low) / spacing) + 1, MOST_POINTS)
+    return around if count < AROUND else (np.linspace(low, low + (count - 1) * spacing, count), *around)
 
 
 def _closer(network: Network, frequency_hz: Real, h: Complex, level: float) -> tuple[Real, Complex]:
