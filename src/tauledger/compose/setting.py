@@ -76,7 +76,9 @@ def device_facts(devices: Iterable[Device]) -> tuple[DeviceFacts, ...]:
             device.kind,
             device.region,
             tuple(
-                Figure(symbol, value, figure_unit(symbol)) for symbol, value in device.figures if math.isfinite(value)
+                Figure(symbol, float(value), figure_unit(symbol))
+                for symbol, value in device.figures
+                if math.isfinite(value)
             ),
             any(part.label == "c_bx" and part.value for part in device.parts),
         )
