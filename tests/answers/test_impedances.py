@@ -93,11 +93,25 @@ def test_feedback_lowers_what_the_output_shows_and_paper_says_by_how_much(review
     assert facts.hand_ohm == pytest.approx(facts.points[0].parallel_ohm, rel=0.01)
 
 
-def test_two_sources_are_seen_as_they_drive_and_paper_keeps_silent(reviews: dict[str, Review]) -> None:
-    """Half the differential input impedance each: r_b + r_π + (β + 1)·RE beside 47 kΩ, tail at rest."""
-    for facts in reviews["pair"].impedances:
+def test_a_pair_in_opposite_phase_is_worked_as_its_half(reviews: dict[str, Review]) -> None:
+    """47 kΩ ‖ (r_b + r_π + (β + 1)·R_E): the tail stands still."""
+    both = [one for one in reviews["pair"].impedances if one.side == "input" and one.says.startswith("beyond")]
+    assert [one.name for one in both] == ["VINP beyond RSP", "VINN beyond RSN"]
+    for facts in both:
+        assert "opposite" in facts.says
+        assert facts.hand_ohm == pytest.approx(facts.points[0].parallel_ohm, rel=1e-3)
+        assert facts.hand_ohm == pytest.approx(12.0e3, rel=0.01)
+
+
+def test_two_sources_that_are_no_pair_are_seen_as_they_drive_and_paper_keeps_silent(
+    engine: Engine, tmp_path: Path
+) -> None:
+    text = (FIXTURES / "pair.cir").read_text(encoding="utf-8")
+    path = tmp_path / "pair.cir"
+    path.write_text(text.replace("AC 0.5 180", "AC 0.2 180"), encoding="utf-8")
+    for facts in review(path, engine=engine, asked=Asked(impedances=True)).impedances:
         if facts.side == "input":
-            assert "the other sources driving too" in facts.says
+            assert facts.says.endswith(", the other sources driving too")
             assert (facts.hand_ohm, facts.hand_text) == (None, "")
 
 

@@ -37,6 +37,7 @@ from tauledger.numbers import Numbers
 from tauledger.record import ImpedanceCurvePoint, ImpedanceFacts, ImpedancePoint
 
 MIDBAND, UPPER_EDGE = "mid-band", "f_H"
+EQUAL = 1e-9
 
 
 def impedances(subject: Subject) -> tuple[ImpedanceFacts, ...]:
@@ -49,8 +50,10 @@ def impedances(subject: Subject) -> tuple[ImpedanceFacts, ...]:
     network = numbers.network
     driven = [part for part in network.parts if part.kind.endswith("source") and network.amplitude(part)]
     found: list[ImpedanceFacts] = []
-    for source in driven:
-        found += _inputs(subject, source_port(network, source), alone=len(driven) == 1)
+    ports = [source_port(network, source) for source in driven]
+    opposite = len(ports) == 2 and abs(sum(map(network.amplitude, driven))) <= EQUAL * abs(network.amplitude(driven[0]))
+    for k, port in enumerate(ports):
+        found += _inputs(subject, port, ports[1 - k] if opposite else None, alone=len(ports) == 1)
     if network.port.kind == "voltage":
         found += _outputs(subject)
     if subject.engine is not None and numbers.circuit is not None:
@@ -73,28 +76,29 @@ class _Frequencies(Struct, frozen=True):
     grid: Real
 
 
-def _inputs(subject: Subject, port: SourcePort, *, alone: bool) -> list[ImpedanceFacts]:
+def _inputs(subject: Subject, port: SourcePort, other: SourcePort | None, *, alone: bool) -> list[ImpedanceFacts]:
+    """Give what one source sees; other: the one that drives in opposite phase, None where there is none."""
     network, at = subject.numbers.network, _frequencies(subject.numbers)
-    beside = "" if alone else ", the other sources driving too"
+    beside = "" if alone else ", the other sources driving too" if other is None else f", {other.source.owner} opposite"
     beyond, whole = (
         _Curve(*(input_admittance(network, port, hz, series=series) for hz in (at.points, at.grid)))
         for series in (False, True)
     )
     simulated = _simulated_inputs(subject, port, at)
     name = port.source.owner
-    without = [port.source.name, *((port.series.name,) if port.series is not None else ())]
+    without = [part.name for one in (port, other) if one is not None for part in (one.source, one.series) if part]
     label = "seen by " + name if port.series is None else f"beyond {port.series.name}"
-    hand = _hand(subject, (port.plus, port.minus), without, label) if alone else None
+    hand = _hand(subject, (port.plus, port.minus), without, label, other) if alone or other is not None else None
     if port.series is None:
-        return [_facts("input", name, f"no resistor in series{beside}", (), at, whole, simulated[1], hand)]
+        return [_facts("input", name, "no resistor in series", (), at, whole, simulated[1], hand, beside)]
     series = port.series.name
-    found = [_facts("input", name, f"beyond {series}{beside}", (series,), at, beyond, simulated[0], hand)]
+    found = [_facts("input", name, f"beyond {series}", (series,), at, beyond, simulated[0], hand, beside)]
     if port.source.kind == "voltage source":
         summed = None
         if hand is not None and hand.source != "solved":
             text = f"R(with {series}) = {series} + {plain(hand.ohm)} = {plain(1.0 / port.series.value + hand.ohm)}"
             summed = replace(hand, ohm=1.0 / port.series.value + hand.ohm, text=text)
-        found.append(_facts("input", name, f"with {series}{beside}", (), at, whole, simulated[1], summed))
+        found.append(_facts("input", name, f"with {series}", (), at, whole, simulated[1], summed, beside))
     return found
 
 
@@ -173,11 +177,25 @@ def _run(subject: Subject, circuit: Circuit, at: _Frequencies) -> _Curve:
     return _Curve(subject.engine.sweep(at.points).response, subject.engine.sweep(at.grid).response)
 
 
-def _hand(subject: Subject, ends: tuple[str, str], without: Collection[str], label: str) -> LookingIn | None:
+def _hand(
+    subject: Subject,
+    ends: tuple[str, str],
+    without: Collection[str],
+    label: str,
+    other: SourcePort | None = None,
+) -> LookingIn | None:
     numbers, live = subject.numbers, [node for node in ends if node != GROUND]
-    if subject.explanation.hand is None or len(live) != 1:
+    opposite = [node for node in (other.plus, other.minus) if node != GROUND] if other is not None else []
+    if subject.explanation.hand is None or len(live) != 1 or len(opposite) > 1:
         return None
-    return port_resistance(numbers.bands, numbers.devices, node=live[0], without=without, label=label)
+    return port_resistance(
+        numbers.bands,
+        numbers.devices,
+        node=live[0],
+        without=without,
+        label=label,
+        opposite=opposite[0] if opposite else None,
+    )
 
 
 def _facts(
@@ -189,6 +207,7 @@ def _facts(
     exact: _Curve,
     simulated: _Curve | None,
     hand: LookingIn | None,
+    beside: str = "",
 ) -> ImpedanceFacts:
     by_rule = hand is not None and hand.source != "solved" and math.isfinite(hand.ohm)
     sizes, angles = _sizes(exact.grid), _angles(exact.grid)
@@ -197,10 +216,10 @@ def _facts(
         (_sizes(simulated.grid), _angles(simulated.grid)) if simulated is not None else (none, none)
     )
     return ImpedanceFacts(
-        name=f"{of} {says.partition(', the other')[0]}",
+        name=f"{of} {says}",
         side=side,
         of=of,
-        says=says,
+        says=says + beside,
         left_out=left_out,
         points=tuple(
             ImpedancePoint(name, hz, *_parted(_at(exact, k), hz), *_parted(_at(simulated, k), hz))
