@@ -875,7 +875,8 @@ class PhaseBudget(Struct, frozen=True):
 
 
 class WantChange(Struct, frozen=True):
-    """One change of a remedy. name: part, of owner; new: it is put in, in series with `beside`. before: None where new.
+    """One change of a remedy. name: part, of owner; new: it is put in, a resistor in series with the part `beside`, a
+    capacitor "out to b". before: None where new.
 
     value: what it must be, in `unit`, exact. first_order: what the slope alone would say, None where it leads nowhere.
     """

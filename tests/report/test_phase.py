@@ -14,7 +14,7 @@ from tauledger.report.html import to_html
 from tauledger.report.json import to_json
 from tauledger.report.layout import SYMBOLS
 from tauledger.report.markdown import to_markdown
-from tauledger.report.tables.wants import change_text, heads, verdict
+from tauledger.report.tables.wants import cells, change_text, heads, verdict
 from tauledger.report.terminal import render
 
 from .literal import ECHO_PREAMP
@@ -172,3 +172,9 @@ def test_what_cannot_be_known_is_said_and_a_card_in_a_subcircuit_keeps_its_name(
     assert verdict(unknown) == "phase margin 60°: nothing can be worked out"
     inside = replace(REACHED, changes=(WantChange("X1.CC", "F", 2e-12, 4e-12, owner="X1.CC"),))
     assert change_text(inside) == "X1.CC"
+
+
+def test_what_is_put_in_says_where_and_its_value_stands_in_its_column() -> None:
+    change = WantChange("CX", "F", None, 7.07e-12, new=True, beside="out to b", owner="CX")
+    one = replace(REACHED, changes=(change,))
+    assert cells(MARGIN, one)[:3] == ("C put in, out to b", "7.070 pF", "")

@@ -1,4 +1,4 @@
-"""The circuit with cards of other value and a resistor put in series with a capacitor, as ngspice is given it."""
+"""The circuit with cards of other value, a resistor or a capacitor put in, as ngspice is given it."""
 
 from __future__ import annotations
 
@@ -8,7 +8,7 @@ import numpy as np
 from msgspec.structs import replace
 
 from tauledger.circuit import ADDED, Circuit, Passives, fold
-from tauledger.network.altered import SeriesResistor
+from tauledger.network.altered import AddedCapacitor, SeriesResistor
 
 
 def is_card(circuit: Circuit, name: str) -> bool:
@@ -16,40 +16,41 @@ def is_card(circuit: Circuit, name: str) -> bool:
     return fold(name) in {fold(one) for one in circuit.passives.name}
 
 
-def changed_circuit(circuit: Circuit, values: Mapping[str, float], series: SeriesResistor | None) -> Circuit:
-    """Give the circuit with these values of plain cards, ohm, farad or henry, and with the resistor put in.
+def changed_circuit(
+    circuit: Circuit, values: Mapping[str, float], series: SeriesResistor | None, added: AddedCapacitor | None = None
+) -> Circuit:
+    """Give the circuit with resistor and capacitor put in, and with these values of plain cards: ohm, farad, henry.
 
-    Raises KeyError where a name is no plain card.
+    Raises KeyError where a name is no plain card, ValueError where a node is none of the circuit.
     """
-    passives = circuit.passives
+    passives, nodes = circuit.passives, circuit.nodes
+    if added is not None:
+        ends = nodes.index(added.plus), nodes.index(added.minus)
+        passives = _with_row(passives, "C", added.name, ends, added.farad)
     row = {fold(name): k for k, name in enumerate(passives.name)}
     value = passives.value.copy()
     for name, new in values.items():
         value[row[fold(name)]] = new
     passives = replace(passives, value=value)
-    if series is None:
-        return replace(circuit, passives=passives)
-    k = row[fold(series.capacitor)]
-    between = len(circuit.nodes)
-    a = passives.a.copy()
-    start, a[k] = int(a[k]), between
-    return replace(
-        circuit,
-        nodes=(*circuit.nodes, f"{series.name}'c"),
-        passives=_with_row(replace(passives, a=a), series, start, between),
-    )
+    if series is not None:
+        k, between = row[fold(series.capacitor)], len(nodes)
+        a = passives.a.copy()
+        start, a[k] = int(a[k]), between
+        nodes = (*nodes, f"{series.name}'c")
+        passives = _with_row(replace(passives, a=a), "R", series.name, (start, between), series.ohm)
+    return replace(circuit, nodes=nodes, passives=passives)
 
 
-def _with_row(passives: Passives, series: SeriesResistor, start: int, stop: int) -> Passives:
-    def longer(column: np.ndarray, value: float) -> np.ndarray:
-        return np.append(column, np.array([value], dtype=column.dtype))
+def _with_row(passives: Passives, kind: str, name: str, ends: tuple[int, int], value: float) -> Passives:
+    def longer(column: np.ndarray, entry: float) -> np.ndarray:
+        return np.append(column, np.array([entry], dtype=column.dtype))
 
     return Passives(
-        kind=passives.kind + "R",
-        name=(*passives.name, series.name),
-        a=longer(passives.a, start),
-        b=longer(passives.b, stop),
-        value=longer(passives.value, series.ohm),
+        kind=passives.kind + kind,
+        name=(*passives.name, name),
+        a=longer(passives.a, ends[0]),
+        b=longer(passives.b, ends[1]),
+        value=longer(passives.value, value),
         card=longer(passives.card, ADDED),
         path=longer(passives.path, 0),
     )

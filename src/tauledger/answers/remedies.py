@@ -16,7 +16,7 @@ from tauledger.answers.elements import Element, elements
 from tauledger.answers.figures import Figures, figures_of
 from tauledger.errors import InputError, NetworkError
 from tauledger.hand.compensated import CompensatedStage
-from tauledger.network.altered import SeriesResistor, altered
+from tauledger.network.altered import AddedCapacitor, SeriesResistor, altered
 from tauledger.network.edges import HALF_POWER, at_same_frequency
 from tauledger.network.first_order import follow_level
 from tauledger.network.targets import UnityMove, follow_unity, unity_moves
@@ -36,6 +36,8 @@ CORRECTIONS = 4
 SAME = 1e-6
 ROUNDS = 60
 MOST_FREE = 3
+# A capacitor that is put in begins at this part of what is across the stage, and may grow to its inverse.
+LEAST_ACROSS = 0.01
 # Where a figure cannot be reached, the change that brings this much of what can be had.
 MOST_OF_IT = 0.95
 
@@ -43,12 +45,19 @@ MOST_OF_IT = 0.95
 class Trial(Struct, frozen=True):
     """One candidate: the element whose value is sought, None where there is none, and a resistor that is put in.
 
-    twin: in a balanced circuit the same element of the other half, which is changed with it.
+    twin: in a balanced circuit the same element of the other half, which is changed with it. added: the element itself,
+    where it is a capacitor that is put in.
     """
 
     element: Element | None
     series: SeriesResistor | None = None
     twin: Element | None = None
+    added: AddedCapacitor | None = None
+
+    @property
+    def farthest(self) -> float:
+        """How far the value may go, in ln: what is put in begins at next to nothing."""
+        return FARTHEST if self.added is None else math.log(LEAST_ACROSS**-2)
 
     def factors(self, factor: float) -> Mapping[str, float]:
         """Give the factors on the parts' values that are this factor on the element's."""
@@ -162,8 +171,9 @@ def _solved(
         if not math.isfinite(slope) or not slope:
             return None
         straight = -start / slope
-        first = math.exp(straight) if abs(straight) <= FARTHEST else None
-        u = _walk(miss, math.copysign(1.0, straight), start)
+        # from next to nothing the slope leads nowhere
+        first = math.exp(straight) if abs(straight) <= FARTHEST and trial.added is None else None
+        u = _walk(miss, math.copysign(1.0, straight), start, trial.farthest)
     figures = _figures(trial, math.exp(u), numbers)
     return None if figures is None else Found(trial, math.exp(u), first, miss(u) <= _near(quantity, aim), figures)
 
@@ -185,14 +195,14 @@ def _follow(trial: Trial, quantity: str, numbers: Numbers) -> Callable[[float], 
 
     def by_unity(factor: float) -> float | None:
         assert unity is not None
-        changed = altered(numbers.network, trial.factors(factor), trial.series)
+        changed = altered(numbers.network, trial.factors(factor), trial.series, trial.added)
         again = follow_unity(changed, numbers.midband, unity)
         if again is None:
             return None
         return again.hz if quantity == "f_u" else again.phase_margin_deg
 
     def by_edge(factor: float) -> float | None:
-        changed = altered(numbers.network, trial.factors(factor), trial.series)
+        changed = altered(numbers.network, trial.factors(factor), trial.series, trial.added)
         level = HALF_POWER * abs(at_same_frequency(changed, numbers.midband).gain)
         start = known[min(known, key=lambda one: abs(math.log(one / factor)))]
         followed = follow_level(changed, level, np.array([start]))
@@ -213,10 +223,10 @@ def _follow(trial: Trial, quantity: str, numbers: Numbers) -> Callable[[float], 
     return by_edge if known else by_search
 
 
-def _walk(miss: Callable[[float], float], direction: float, start: float) -> float:
+def _walk(miss: Callable[[float], float], direction: float, start: float, farthest: float) -> float:
     """Go from 0 in steps until the figure is reached, then narrow; else stop where little more is to be had."""
     trail = [(start, 0.0)]
-    while abs(trail[-1][1]) < FARTHEST:
+    while abs(trail[-1][1]) < farthest:
         before, u = trail[-1]
         after = u + direction * STEP
         here = miss(after)
@@ -253,7 +263,7 @@ def _narrow(miss: Callable[[float], float], out: tuple[float, float], reached: t
 def _figures(trial: Trial, factor: float, numbers: Numbers, *, held: bool = False) -> Figures | None:
     """Give all figures with the element's value times this factor; held: the mid-band frequency is not sought anew."""
     try:
-        changed = altered(numbers.network, trial.factors(factor), trial.series)
+        changed = altered(numbers.network, trial.factors(factor), trial.series, trial.added)
         return figures_of(changed, numbers.midband, chosen=held or numbers.midband_chosen)
     except (NetworkError, InputError):
         # far from its value an element can leave a network without solution or signal: no candidate there
@@ -261,11 +271,11 @@ def _figures(trial: Trial, factor: float, numbers: Numbers, *, held: bool = Fals
 
 
 def _of_stage(stage: CompensatedStage, known: Mapping[str, Element], numbers: Numbers) -> Iterator[Trial]:
-    """R in series with C_c, C_c itself, both; where R_z is there already its value; the load; gm comes later."""
+    """R in series with C_c, C_c itself, both; or R_z and C_c where both are there; or C_c where none is; the load."""
     capacitor = known.get(stage.capacitors[0])
     if capacitor is not None and capacitor.free:
         if not stage.r_z:
-            series = SeriesResistor(_free_name(numbers), capacitor.name, 1.0 / stage.gm_2)
+            series = SeriesResistor(_free_name(numbers, "RZ"), capacitor.name, 1.0 / stage.gm_2)
             yield Trial(None, series)
             yield Trial(capacitor)
             yield Trial(capacitor, series)
@@ -274,9 +284,22 @@ def _of_stage(stage: CompensatedStage, known: Mapping[str, Element], numbers: Nu
             if resistor is not None and resistor.free:
                 yield Trial(resistor)
             yield Trial(capacitor)
+    elif capacitor is None or capacitor.name != capacitor.owner:
+        yield from _across(stage, numbers)
     load = _load(stage, known, numbers)
     if load is not None:
         yield Trial(load)
+
+
+def _across(stage: CompensatedStage, numbers: Numbers) -> Iterator[Trial]:
+    """A capacitor across a stage that has its transistor's own alone, where both ends are nodes of the netlist."""
+    network = numbers.network
+    ends = stage.output_name, stage.input_name
+    if any("'" in end or end not in network.unknowns[: network.n_nodes] for end in ends):
+        return
+    added = AddedCapacitor(_free_name(numbers, "CX"), *ends, LEAST_ACROSS * stage.across)
+    one = Element(added.name, added.name, ends, added.farad, "F", 1.0, True, False)
+    yield Trial(one, added=added)
 
 
 def _load(stage: CompensatedStage, known: Mapping[str, Element], numbers: Numbers) -> Element | None:
@@ -290,9 +313,8 @@ def _load(stage: CompensatedStage, known: Mapping[str, Element], numbers: Number
     return max(loads, key=lambda one: one.value, default=None)
 
 
-def _free_name(numbers: Numbers) -> str:
+def _free_name(numbers: Numbers, name: str) -> str:
     taken = {part.owner.casefold() for part in numbers.network.parts}
-    name = "RZ"
     while name.casefold() in taken:
         name += "X"
     return name

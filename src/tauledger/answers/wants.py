@@ -100,7 +100,7 @@ def _remedies(found: Review, subject: Subject, want: Want, now: float) -> list[R
 
 def _remedy(outcome: Found, want: Want, subject: Subject) -> Remedy:
     figures = outcome.figures
-    element, series = outcome.trial.element, outcome.trial.series
+    element, series, added = outcome.trial.element, outcome.trial.series, outcome.trial.added
     changes: list[WantChange] = []
     if series is not None:
         changes.append(
@@ -108,11 +108,20 @@ def _remedy(outcome: Found, want: Want, subject: Subject) -> Remedy:
         )
     if element is not None:
         first = None if outcome.first_order is None else element.value * outcome.first_order
-        for one in (element, outcome.trial.twin):
-            if one is not None:
-                changes.append(
-                    WantChange(one.name, one.unit, one.value, one.value * outcome.factor, first, owner=one.owner)
-                )
+        changes += [
+            WantChange(
+                one.name,
+                one.unit,
+                None if added is not None else one.value,
+                one.value * outcome.factor,
+                first,
+                new=added is not None,
+                beside="" if added is None else f"{added.plus} to {added.minus}",
+                owner=one.owner,
+            )
+            for one in (element, outcome.trial.twin)
+            if one is not None
+        ]
     figure = figures.of(want.quantity)
     simulated, says = _by_ngspice(outcome, want, subject)
     return Remedy(
@@ -138,10 +147,11 @@ def _by_ngspice(outcome: Found, want: Want, subject: Subject) -> tuple[float | N
     if numbers.circuit is None or engine is None:
         return None, ""
     changed = [one for one in (element, outcome.trial.twin) if one is not None]
-    if any(one.moves_bias or not is_card(numbers.circuit, one.name) for one in changed):
+    added = outcome.trial.added
+    if any(one.moves_bias or not (added or is_card(numbers.circuit, one.name)) for one in changed):
         return None, "by algebra alone, all else held"
     values = {one.name: one.value * outcome.factor for one in changed}
-    circuit = changed_circuit(numbers.circuit, values, outcome.trial.series)
+    circuit = changed_circuit(numbers.circuit, values, outcome.trial.series, added)
     return _run(engine, circuit, outcome.figures, want)
 
 

@@ -1,4 +1,4 @@
-"""The network with elements of other value and with resistors put in series with capacitors; the bias is held."""
+"""The network with elements of other value, a resistor in series with a capacitor, a capacitor put in; bias held."""
 
 from __future__ import annotations
 
@@ -8,7 +8,7 @@ from msgspec import Struct
 from msgspec.structs import replace
 
 from tauledger.devices.family import inner_node
-from tauledger.devices.parts import resistance
+from tauledger.devices.parts import capacitance, resistance
 from tauledger.network.assemble import Network, assemble
 from tauledger.network.recompute import scaled
 
@@ -19,6 +19,15 @@ class SeriesResistor(Struct, frozen=True):
     name: str
     capacitor: str
     ohm: float
+
+
+class AddedCapacitor(Struct, frozen=True):
+    """A capacitor of so many farad that is put in between two nodes; name: its own."""
+
+    name: str
+    plus: str
+    minus: str
+    farad: float
 
 
 def with_series(network: Network, series: SeriesResistor) -> Network:
@@ -36,10 +45,15 @@ def with_series(network: Network, series: SeriesResistor) -> Network:
     return assemble(tuple(parts), network.port, network.amplitudes)
 
 
-def altered(network: Network, factors: Mapping[str, float], series: SeriesResistor | None) -> Network:
-    """Give the network with the parts' values multiplied (S of a conductance) and the resistor put in.
+def altered(
+    network: Network, factors: Mapping[str, float], series: SeriesResistor | None, added: AddedCapacitor | None = None
+) -> Network:
+    """Give the network with resistor and capacitor put in and then the parts' values multiplied (S of a conductance).
 
     Raises KeyError where a name belongs to no part.
     """
-    changed = scaled(network, factors) if factors else network
-    return changed if series is None else with_series(changed, series)
+    changed = network if series is None else with_series(network, series)
+    if added is not None:
+        part = capacitance(added.name, added.plus, added.minus, added.farad)
+        changed = assemble((*changed.parts, part), changed.port, changed.amplitudes)
+    return scaled(changed, factors) if factors else changed

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from tauledger.record import Remedy, Review, WantFacts
+from tauledger.record import Remedy, Review, WantChange, WantFacts
 from tauledger.report.tables.grid import Grid, GridRow, columns
 from tauledger.report.tables.phase import angle
 from tauledger.report.wording import NO_NUMBER, nominal, number, part_title
@@ -56,7 +56,7 @@ def heads(want: WantFacts) -> Cells:
 
 def cells(want: WantFacts, one: Remedy) -> Cells:
     """Give the cells of one remedy: the change, its value, what the slope alone says, what comes of it."""
-    value = next((change for change in one.changes if not change.new), None)
+    value = next((change for change in one.changes if not _put_in(change)), None)
     beside = {
         "f_u": number(one.f_unity_hz, "Hz", 4),
         "margin": angle(one.phase_margin_deg),
@@ -76,10 +76,15 @@ def cells(want: WantFacts, one: Remedy) -> Cells:
 
 def change_text(one: Remedy) -> str:
     """Name a change: "824 Ω (1/gm) in series with CC, and CC"; marks one that is not enough or moves the bias."""
-    put_in = [f"{number(c.value, c.unit, 3)} (1/gm) in series with {c.beside}" for c in one.changes if c.new]
-    moved = [part_title(c.name, c.owner) for c in one.changes if not c.new]
+    put_in = [f"{number(c.value, c.unit, 3)} (1/gm) in series with {c.beside}" for c in one.changes if _put_in(c)]
+    moved = [f"C put in, {c.beside}" if c.new else part_title(c.name, c.owner) for c in one.changes if not _put_in(c)]
     together = " and ".join(moved) + (BIAS if one.moves_bias else "")
     return ", and ".join(filter(None, (*put_in, together))) + ("" if one.reaches else ": not enough")
+
+
+def _put_in(change: WantChange) -> bool:
+    """Whether a change is a resistor of given value, put in; a capacitor that is put in has its value sought."""
+    return change.new and change.unit == "Ω"
 
 
 def notes(want: WantFacts) -> str:
