@@ -44,7 +44,6 @@ from tauledger.network.identities import (
 from tauledger.network.lines import at_rest
 from tauledger.network.lower import ShortConstants, short_constants
 from tauledger.network.recompute import EdgeFrequencies, each_scaled, edge_frequencies
-from tauledger.network.ripple import followed_to_hz
 from tauledger.network.shares import Shares, find_shares
 from tauledger.network.solve import Complex
 from tauledger.network.spectrum import pole_frequencies, zero_frequencies
@@ -182,6 +181,10 @@ def _at_rest(numbers: Numbers) -> EdgeFrequencies | None:
 
 def _followed_to_hz(numbers: Numbers) -> float | None:
     """Give where the scan stops following the ripple of lines; None where it follows it to its end."""
+    if not numbers.network.lines:
+        return None
+    from tauledger.network.ripple import followed_to_hz
+
     limit = followed_to_hz(numbers.network)
     return limit if limit is not None and limit < float(numbers.edges.frequency_hz[-1]) else None
 

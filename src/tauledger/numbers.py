@@ -27,7 +27,6 @@ from tauledger.network.edges import Edges, find_edges
 from tauledger.network.midband import MidBand, find_midband, frequency_range
 from tauledger.network.poles import PoleZeroMap, find_poles
 from tauledger.network.recompute import EdgeFrequencies, edge_frequencies, scaled
-from tauledger.network.ripple import ripple_grids
 from tauledger.network.solve import Complex, response
 from tauledger.network.transformers import drawn_out
 from tauledger.network.unity import is_ratio
@@ -93,9 +92,7 @@ def solve(
     network = Network.from_parts(linearised.parts, output=circuit.output)
     numbers = solve_network(network, devices=linearised.devices, midband_hz=midband_hz)
     grid = _sweep_grid(numbers, ac_range(netlist))
-    high = numbers.edges.f_high
-    ripple_hz = ripple_grids(network, high.hz if high is not None else None, float(grid[-1]))
-    simulated = simulate(engine.sweep, grid, midband=numbers.midband, ripple_hz=ripple_hz)
+    simulated = simulate(engine.sweep, grid, midband=numbers.midband, ripple_hz=_ripple_grids(numbers, grid))
     swept = simulated.all_of_it
     exact = response(network, swept.frequency_hz)
     agreed = agreement(swept.frequency_hz, exact, swept.response, numbers.midband.gain)
@@ -175,3 +172,13 @@ def _sweep_grid(numbers: Numbers, asked: tuple[float, float] | None) -> NDArray[
     if asked is not None:
         start, stop = min(start, asked[0]), max(stop, asked[1])
     return decades(start, max(stop, 10.0 * start), POINTS_PER_DECADE)
+
+
+def _ripple_grids(numbers: Numbers, grid: NDArray[np.float64]) -> tuple[NDArray[np.float64], ...]:
+    """Lay out what the sweep's grid (n,) misses of a line's ripple."""
+    if not numbers.network.lines:
+        return ()
+    from tauledger.network.ripple import ripple_grids
+
+    high = numbers.edges.f_high
+    return ripple_grids(numbers.network, high.hz if high is not None else None, float(grid[-1]))

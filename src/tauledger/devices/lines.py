@@ -77,10 +77,10 @@ def _refuse(_element: Element, model: Model | None) -> Refusal | None:
             return Refusal(name, f"a lossy line cannot have a negative {name.upper()}", f"give {name.upper()}= above 0")
     given = frozenset(name for name in "rlgc" if model.parameter(name, 0.0) > 0.0)
     if given not in HAS:
-        has = ", ".join(name.upper() for name in "rlgc" if name in given) or "none of R, L, G, C"
+        has = ", ".join(name.upper() for name in "rlgc" if name in given) or "nothing"
         culprit = next((name for name in "gcrl" if name in given), "c")
         known = "; ".join(HAS.values())
-        return Refusal(culprit, f"ngspice has no lossy line with {has} alone", f"per length give: {known}")
+        return Refusal(culprit, f"ngspice has no lossy line of {has}", f"per length give: {known}")
     if not model.parameter("len", 0.0) > 0.0:
         return Refusal("len", "the length LEN of a lossy line must be greater than 0", "give LEN=")
     return None

@@ -14,7 +14,6 @@ from tauledger.network.angle import Angle, scanned_angle
 from tauledger.network.assemble import Network
 from tauledger.network.lines import lumped
 from tauledger.network.midband import MidBand, frequency_range
-from tauledger.network.ripple import with_ripple
 from tauledger.network.solve import Complex, Real, log_slope, on_axis, response, solve
 from tauledger.network.spectrum import frequency_grid, pole_frequencies, zero_frequencies
 
@@ -127,6 +126,8 @@ def _scan(network: Network, midband: MidBand) -> tuple[Real, Complex, Complex, C
     frequency = frequency[frequency >= midband.floor_hz]
     h = response(network, frequency)
     if network.lines:
+        from tauledger.network.ripple import with_ripple
+
         level = HALF_POWER * abs(midband.gain)
         frequency, h = with_ripple(network, frequency, h, from_hz=midband.frequency_hz, level=level)
     return frequency, h, poles, zeros

@@ -17,7 +17,6 @@ from tauledger.network.angle import scanned_angle
 from tauledger.network.assemble import Network
 from tauledger.network.edges import LAST_STEP, Edges, crossing, find_edges
 from tauledger.network.midband import MidBand
-from tauledger.network.ripple import with_ripple
 from tauledger.network.solve import Complex, Real, log_slope, on_axis, response, solve
 
 HALF_TURN_DEG = 180.0
@@ -62,6 +61,8 @@ def find_unity(network: Network, midband: MidBand, edges: Edges | None = None) -
         return None
     frequency, h = _outwards(network, midband, edges)
     if network.lines:
+        from tauledger.network.ripple import with_ripple
+
         frequency, h = with_ripple(network, frequency, h, from_hz=midband.frequency_hz, level=1.0)
         angle = scanned_angle(midband, frequency, h)
     over = np.abs(h) >= 1.0
