@@ -12,6 +12,7 @@ import pytest
 
 import boards
 from cells import near
+from tauledger.asked import Asked
 from tauledger.circuit import Port
 from tauledger.devices.parts import (
     capacitance,
@@ -119,6 +120,21 @@ def test_zero_of_the_right_half_plane_near_the_edge() -> None:
     assert sizes(review) == near([1222100.0, 207270000.0], rel=FIVE_DIGITS)
     assert right_half_plane_zero_hz(0.2e-3, 10 * PICO) == near(3183100.0, rel=FIVE_DIGITS)
     assert review.zeros[0].real_hz == near(3183100.0, rel=FIVE_DIGITS)
+
+
+def test_each_stage_has_a_zero_of_the_right_half_plane_ghlm_7_3_3() -> None:
+    """Gray, Hurst, Lewis and Meyer 5e, sec. 7.3.3: gm/C_gd of both stages, 3 mA/V and 6 mA/V over 1 pF.
+
+    477 and 955 MHz as zeros of the whole amplifier (worked for this project); paper has each by itself.
+    """
+    network = boards.two_common_source_stages()
+    assert sorted(one.real_hz for one in review_network(network).zeros) == near([477e6, 955e6], rel=1e-3)
+    assert right_half_plane_zero_hz(3e-3, 1 * PICO) == near(477e6, rel=1e-3)
+    assert right_half_plane_zero_hz(6e-3, 1 * PICO) == near(955e6, rel=1e-3)
+    budget = review_network(network, asked=Asked(unity=True)).phase_budget
+    assert budget is not None
+    by_hand = [row.hand_hz for row in budget.rows if row.kind == "zero"]
+    assert by_hand == near([477e6, 955e6], rel=1e-3)
 
 
 def test_mirror_doublet_uses_at_most_19_degrees_ghlm_7_3_5() -> None:
