@@ -67,7 +67,7 @@ WIRE = LoopFacts(
     hand_ideal_gain=-10.0,
     hand_ideal_text="-R4/(RS + R3)",
     hand_open_edge_hz=9.5e3,
-    hand_open_nodes=(LoopNodeFacts("out", 25e3, 600e-12, 15e-6), LoopNodeFacts("Q1'loop (inside Q1)", 1e3, 1e-9, 1e-6)),
+    hand_open_nodes=(LoopNodeFacts("out", 25e3, 600e-12, 15e-6), LoopNodeFacts("inside Q1", 1e3, 1e-9, 1e-6)),
     estimates=(
         LoopEstimate("by hand, edge of T times 1 + T", 959.5e3, -0.05),
         LoopEstimate("ideal gain alone", 8e6, 7.0),
@@ -149,7 +149,7 @@ def test_the_page_works_t0_ideal_gain_and_edge_out() -> None:
     assert "(-0.99 %)" in page
     assert "A∞ = -R4/(RS + R3) = -10 V/V; A∞·T0/(1 + T0) = -9.901 V/V (+0.01 %); β = 1/A∞ = -0.1" in page
     assert "1/(2π·(25.0 kΩ·600 pF (out) + 1.00 kΩ·1.00 nF (inside Q1))) = 9.500 kHz (-5.0 %)" in page
-    assert "closed loop A∞·T/(1 + T) + A0/(1 + T) = -9.9 V/V, T of gm of Q1 101.0" in page
+    assert "A0/(1 + T) = -9.9 V/V with the ideal gain A∞ -10 V/V, feedthrough A0 0.25 V/V, T 101.0 at gm of Q1" in page
     assert "by hand, edge of T · (1 + T0) 959.5 kHz -5.0 %" in page
     assert "ideal gain A∞, with T → ∞ 8.000 MHz 8 times" in page
 

@@ -36,6 +36,7 @@ from tauledger.network.return_ratio import Opening, asymptotic, checked, return_
 from tauledger.network.solve import Real, on_axis, response
 from tauledger.network.spectrum import pole_frequencies
 from tauledger.numbers import Numbers
+from tauledger.quantity import engineering
 from tauledger.record import AmplifierFacts, LoopCurve, LoopEstimate, LoopFacts, LoopNodeFacts, LoopStageFacts, Review
 
 AROUND = np.array([0.97, 0.985, 1.0, 1.015, 1.03])
@@ -293,12 +294,23 @@ def _why(facts: LoopFacts, first: float, loop: float | None, ideal: float | None
     told = []
     if ideal is not None and ideal < 0.5 * first:
         return ("elements around the amplifier set f_H: with T → ∞ the gain would fall there by itself",)
+    hand = facts.noise_gain_edge_hz
+    if hand is not None and abs(first / hand - 1.0) > WORTH_TELLING:
+        told.append(
+            f"what loads the amplifier on the board leaves {100.0 * first / hand:.0f} % of its gain-bandwidth product"
+        )
     if loop is not None and abs(loop / first - 1.0) > WORTH_TELLING and facts.phase_margin_deg is not None:
         lag = facts.phase_margin_deg - 180.0
         more = "a second pole is near" if lag < -90.0 else "a zero lifts it"
         told.append(f"T has not one pole alone: {more}, where |T| = 1 its phase is {lag:.0f}° instead of -90°")
     if loop is not None and abs(exact / loop - 1.0) > WORTH_TELLING:
-        told.append("what the loop does not hold adds poles and zeros of its own: source, load and feedback elements")
+        if ideal is not None and ideal < 4.0 * exact:
+            told.append(
+                f"the ideal gain falls too, 3 dB at {engineering(ideal, 'Hz', 4)}: what bridges the amplifier, source "
+                "and load"
+            )
+        else:
+            told.append("what the loop does not hold adds poles and zeros of its own: source, load, feedthrough")
     return tuple(told)
 
 

@@ -20,6 +20,7 @@ from tauledger.devices.instances import elements_inside, macromodels
 from tauledger.devices.parts import Part
 from tauledger.errors import InputError, NetworkError
 from tauledger.explain import Explanation
+from tauledger.hand.equivalent import joined_nodes
 from tauledger.hand.feedback import LOOP_ABOVE, FoundLoop, find_loop
 from tauledger.network.assemble import Network
 from tauledger.network.return_ratio import (
@@ -35,7 +36,7 @@ from tauledger.network.return_ratio import (
 from tauledger.network.solve import on_axis, solve
 from tauledger.numbers import Numbers
 
-CARRIES_SIGNAL = 1e-9
+FAR_BELOW = 1e6
 
 
 class Amplifier(Struct, frozen=True):
@@ -221,7 +222,7 @@ def _at_instance(numbers: Numbers, network: Network, instance: Instance) -> Plac
     outer |= {numbers.network.port.plus, numbers.network.port.minus} - {GROUND, ""}
     touched = {node for part in inside for node in part.nodes}
     pins = tuple(node for node in network.unknowns[: network.n_nodes] if node in outer & touched)
-    moved = _moved(network, numbers.midband.frequency_hz)
+    moved = _moved(network)
     sources = [part for part in inside if part.kind in CONTROLLED and not part.references]
     inputs = [
         part
@@ -234,7 +235,7 @@ def _at_instance(numbers: Numbers, network: Network, instance: Instance) -> Plac
             f"--loop {instance.name}: no source inside is controlled by its inputs", f"sources inside: {told}"
         )
     # of several, as of differential and common-mode stages, the loop is closed by the one with the largest T
-    at_hz = numbers.midband.frequency_hz
+    at_hz = _reference(numbers)
     owners = dict.fromkeys(part.owner.partition("'")[0] for part in inputs)
     owner = max(owners, key=lambda one: abs(_ratio(network, one, at_hz)))
     part = next(part for part in inputs if part.owner.partition("'")[0] == owner)
@@ -247,15 +248,24 @@ def _at_instance(numbers: Numbers, network: Network, instance: Instance) -> Plac
     return Place(instance.name, where, opening, cut_out_of(numbers.circuit, owner), amplifier=amplifier)
 
 
+def _reference(numbers: Numbers) -> float:
+    """Give mid-band; for that at DC, where an integrator opened has no answer, a frequency far below all poles."""
+    at_hz = numbers.midband.frequency_hz
+    if at_hz > 0.0:
+        return at_hz
+    moving = [abs(pole.s) for pole in numbers.poles.poles if pole.s != 0.0]
+    return min(moving, default=2.0 * np.pi) / (2.0 * np.pi) / FAR_BELOW
+
+
 def _ratio(network: Network, owner: str, at_hz: float) -> complex:
     return complex(return_ratio(at_source(network, _controlled(network, owner)), on_axis(at_hz))[0])
 
 
-def _moved(network: Network, at_hz: float) -> set[str]:
-    """Name the nodes that the signal moves at mid-band."""
-    x = np.abs(solve(network, on_axis(at_hz)).x[0][: network.n_nodes])
-    least = CARRIES_SIGNAL * float(x.max(initial=0.0))
-    return {node for node, size in zip(network.unknowns, x, strict=False) if size > least}
+def _moved(network: Network) -> set[str]:
+    """Name the nodes that no source holds still, as supplies are held."""
+    still = {part.name for part in network.parts if part.kind == "voltage source" and not network.amplitude(part)}
+    at = joined_nodes(network, still)
+    return {node for node, held in at.items() if held != GROUND}
 
 
 def _output_pin(opening: Opening, pins: Iterable[str], at_hz: float) -> str:
@@ -274,7 +284,7 @@ def _loops_of_instances(numbers: Numbers, instances: list[Instance]) -> list[Pla
     for instance in instances:
         try:
             place = _at_instance(numbers, network, instance)
-            t = complex(return_ratio(place.opening, on_axis(numbers.midband.frequency_hz))[0]).real
+            t = complex(return_ratio(place.opening, on_axis(_reference(numbers)))[0]).real
         except (InputError, NetworkError):
             continue
         if t > LOOP_ABOVE:

@@ -27,6 +27,8 @@ from tauledger.network.solve import on_axis, response
 
 DRIVE, SHORT = "loop'v", "loop'0"
 COUNTS = 0.01
+# The gain that multiplies the input capacitance has not fallen yet, and coupling capacitors are shorts.
+BELOW_THE_EDGE = 0.1
 
 
 class OpenNode(Struct, frozen=True):
@@ -50,7 +52,7 @@ def open_loop(
 ) -> OpenLoop | None:
     """Work the time constants of the opened loop out.
 
-    at_hz: mid-band. edge_hz: about where the edge of T is; the input capacitance is taken there. None for a loop that
+    at_hz: mid-band. edge_hz: about where the edge of T is; the input capacitance is taken somewhat below. None for a loop that
     is not cut at a wire, and where no hand table can be given.
     Raises NetworkError where the network has no unique solution.
     """
@@ -59,7 +61,7 @@ def open_loop(
     cut = at_wire(network, loop.owner, loop.node)
     parts = tuple(part for part in cut.network.parts if part.owner != SERIES)
     silent = dict.fromkeys(network.amplitudes, 0j)
-    siemens, farad = _load(parts, silent, cut.far, loop.node, at_hz, edge_hz)
+    siemens, farad = _load(parts, silent, cut.far, loop.node, at_hz, BELOW_THE_EDGE * edge_hz)
     load = [conductance("R_in", loop.node, GROUND, siemens)] if siemens > 0.0 else []
     load += [capacitance("C_in", loop.node, GROUND, farad)] if farad > 0.0 else []
     driven = voltage_source(DRIVE, cut.far, GROUND, 1.0)
@@ -77,21 +79,27 @@ def open_loop(
         return None
     ordered = sorted(rows, key=lambda row: -abs(row.time_constant_s))
     shown = tuple(
-        OpenNode(row.name, row.resistance_hand_ohm, row.capacitance_f, row.time_constant_s)
+        OpenNode(_called(row.name), row.resistance_hand_ohm, row.capacitance_f, row.time_constant_s)
         for row in ordered
         if abs(row.time_constant_s) >= COUNTS * total
     )
     return OpenLoop(1.0 / (2.0 * math.pi * total), shown)
 
 
+def _called(name: str) -> str:
+    """Name what lies behind the cut by its transistor."""
+    owner, cut, _ = name.partition("'loop")
+    return f"inside {owner}" if cut else name
+
+
 def _load(
-    parts: tuple[Part, ...], silent: dict[str, complex], far: str, near: str, at_hz: float, edge_hz: float
+    parts: tuple[Part, ...], silent: dict[str, complex], far: str, near: str, at_hz: float, below_hz: float
 ) -> tuple[float, float]:
-    """Give conductance at mid-band and capacitance at the edge of what the wire leads to, the near end at ground."""
+    """Give conductance at mid-band and capacitance at below_hz of what the wire leads to, the near end at ground."""
     held = (*parts, voltage_source(DRIVE, far, GROUND, 1.0), voltage_source(SHORT, near, GROUND))
     measured = assemble(held, Port("", kind="current", through=DRIVE), {**silent, DRIVE: 1.0, SHORT: 0j})
-    y = -response(measured, np.array([at_hz, edge_hz]))
-    return float(y[0].real), float(y[1].imag / on_axis(edge_hz)[0].imag)
+    y = -response(measured, np.array([at_hz, below_hz]))
+    return float(y[0].real), float(y[1].imag / on_axis(below_hz)[0].imag)
 
 
 def _moved(device: Device, node: str, far: str) -> Device:

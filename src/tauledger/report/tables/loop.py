@@ -17,6 +17,7 @@ METHODS = {
     "closed loop, exact": "closed loop, exact",
 }
 TIMES = 2.0
+SAME = 1e-3
 
 
 def place(facts: LoopFacts) -> str:
@@ -65,13 +66,12 @@ def closed_text(facts: LoopFacts) -> tuple[str, ...]:
     through = number(facts.feedthrough, facts.unit)
     if facts.ideal_gain is None:
         return (f"T is 0 there: the gain, {number(facts.closed_gain, facts.unit)}, is feedthrough A0 alone",)
-    own = facts.closing_source != facts.where
-    other = (
-        f", T of {facts.closing_source} {_plain(facts.closing_return_ratio)}, its own resistances in it" if own else ""
-    )
+    wire = math.hypot(facts.return_ratio_real, facts.return_ratio_imag)
+    own = abs(facts.closing_return_ratio - wire) > SAME * wire
+    other = f", T {_plain(facts.closing_return_ratio)} at {facts.closing_source}, its own resistances counted"
     return (
-        f"ideal A∞ {number(facts.ideal_gain, facts.unit)}, feedthrough A0 {through}; closed loop A∞·T/(1 + T) + "
-        f"A0/(1 + T) = {number(facts.closed_gain, facts.unit)}{other}",
+        f"closed loop A∞·T/(1 + T) + A0/(1 + T) = {number(facts.closed_gain, facts.unit)} with the ideal gain A∞ "
+        f"{number(facts.ideal_gain, facts.unit)}, feedthrough A0 {through}{other if own else ''}",
     )
 
 
@@ -134,7 +134,7 @@ def open_text(facts: LoopFacts) -> tuple[str, ...]:
     if facts.hand_open_edge_hz is None:
         return ()
     nodes = " + ".join(
-        f"{number(one.ohm, 'Ω', 3)}·{number(one.farad, 'F', 3)} ({_node(one.node)})" for one in facts.hand_open_nodes
+        f"{number(one.ohm, 'Ω', 3)}·{number(one.farad, 'F', 3)} ({one.node})" for one in facts.hand_open_nodes
     )
     exact = facts.open_edge_hz
     off = "" if not exact else f" ({move(facts.hand_open_edge_hz / exact - 1.0)})"
@@ -173,12 +173,6 @@ def estimates(facts: LoopFacts) -> Grid:
     rows = tuple(GridRow(cells) for cells in estimate_rows(facts))
     edge = "" if facts.open_edge_hz is None else f"The edge of T itself: {number(facts.open_edge_hz, 'Hz')}."
     return Grid("Closed-loop f_H from the loop", heads, rows, edge)
-
-
-def _node(name: str) -> str:
-    """Name a node of the opened loop: what lies behind the cut is called by its transistor."""
-    owner, cut, _ = name.partition("'loop")
-    return f"inside {owner}" if cut else name
 
 
 def _factor(stage: LoopStageFacts) -> str:
