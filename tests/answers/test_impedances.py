@@ -9,9 +9,10 @@ from pathlib import Path
 import numpy as np
 import pytest
 
+import boards
 from tauledger.asked import Asked
 from tauledger.engine.client import Engine
-from tauledger.pipeline import review
+from tauledger.pipeline import review, review_network
 from tauledger.record import ImpedanceFacts, Review
 from tauledger.report.charts.impedance import impedance_chart
 from tauledger.report.document import document
@@ -173,3 +174,14 @@ def test_a_coupling_capacitor_that_still_counts_is_said_in_series(engine: Engine
 )
 def test_what_carries_nothing_is_not_written(ohm: float | None, farad: float | None, written: str) -> None:
     assert parallel(ohm, farad, 1e6) == written
+
+
+def test_a_network_alone_has_exact_impedances_and_none_simulated() -> None:
+    one = review_network(boards.weak_stage_with_large_bridge(), asked=Asked(impedances=True))
+    assert {facts.side for facts in one.impedances} == {"input", "output"}
+    for facts in one.impedances:
+        assert all(point.parallel_ohm is not None for point in facts.points)
+        assert all(point.simulated_real_ohm is None for point in facts.points)
+        assert all(point.simulated_ohm is None and point.exact_ohm for point in facts.curve)
+    lines = [line.text for line in lay_out([impedances(one)], width=80, unicode=True, page=60)]
+    assert not any("simulated" in line for line in lines)

@@ -6,10 +6,11 @@ from pathlib import Path
 
 import pytest
 
+import boards
 from tauledger.asked import Asked
 from tauledger.engine.client import Engine
 from tauledger.errors import InputError
-from tauledger.pipeline import review
+from tauledger.pipeline import review, review_network
 from tauledger.record import Review
 from tauledger.report.document import document
 from tauledger.report.layout import lay_out
@@ -72,6 +73,11 @@ def test_a_node_inside_what_is_taken_as_one_part_says_how_to_see_it(engine: Engi
 def test_an_output_where_only_rounding_arrives_is_refused(engine: Engine) -> None:
     with pytest.raises(InputError, match=r"the drive does not reach it"):
         reviewed("pair.cir", engine, "tail")
+
+
+def test_a_network_alone_has_one_output() -> None:
+    with pytest.raises(InputError, match="further outputs are read from a netlist"):
+        review_network(boards.emitter_follower(), asked=Asked(outputs=("out",)))
 
 
 def test_an_unknown_output_names_the_nearest(engine: Engine) -> None:

@@ -30,11 +30,12 @@ NOTHING = 1e-12
 def output_rows(subject: Subject, outputs: tuple[str, ...]) -> tuple[OutputRow, ...]:
     """Give one row per output as typed: "c", "v(a,b)", "i(vload)", each against its own plateau.
 
-    Raises InputError where there is no such node or current, or where it is inside an instance taken as one part.
+    Raises InputError where there is no such node or current, where it is inside an instance taken as one part, where
+    the drive does not reach it, and for a network without netlist.
     """
     numbers, circuit = subject.numbers, subject.numbers.circuit
     if circuit is None:
-        return ()
+        raise InputError("further outputs are read from a netlist", "review the network once per output")
     ports = [_port(numbers.network, circuit, output) for output in outputs]
     rows = tuple(_row(subject, circuit, port) for port in ports)
     if subject.engine is not None:
