@@ -31,6 +31,20 @@ def roles(stage: tuple[Bands, tuple[Device, ...]]) -> dict[str, str]:
     return {cell.owner: role_of(circuit, cell) for cell in circuit.cells}
 
 
+@pytest.mark.parametrize(
+    ("nodes", "role"),
+    [
+        (("out", "s", "0"), "common emitter"),
+        (("out", "s", "e"), "common emitter, degenerated"),
+        (("0", "s", "out"), "emitter follower (common collector)"),
+        (("out", "0", "s"), "common base"),
+    ],
+)
+def test_a_terminal_that_the_source_drives_directly_has_the_signal(nodes: tuple[str, str, str], role: str) -> None:
+    rest = [resistance("RE", "e", "0", 1e3)] if "e" in nodes else []
+    assert roles(board(bipolar("Q1", nodes), RL, *rest, output="out")) == {"Q1": role}
+
+
 def test_a_base_and_a_collector_that_is_the_output() -> None:
     assert titles(RS, bipolar("Q1", ("c", "b", "0")), RC, COUPLING, RL) == {
         "b": "base of Q1 (b)",

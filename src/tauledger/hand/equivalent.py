@@ -41,8 +41,8 @@ class EquivalentCircuit(Struct, frozen=True):
     """Resistors, cells and open capacitances between hand nodes, and the exact matrices on the same nodes.
 
     at: every node of the whole network → its hand node, "0" for ground, supplies and driven nodes. driven: those
-    of the whole network's nodes that a source moves away from their hand node. members: hand node → nodes of the whole
-    network, file order.
+    of the whole network's nodes that a source moves away from their hand node, with their voltage. members: hand node →
+    nodes of the whole network, file order.
     nodes: the n live hand nodes. impedance Z: (n, n) ohm, input nulled. whole: the same, complex, at s_mid, which is 0
     but where capacitors set the gain; impedance is then Re Z of the poles above s_mid. voltage x, adjoint λ, injected:
     (n,) complex; injected is the drive as a Norton current into each live node, A. response H.
@@ -51,7 +51,7 @@ class EquivalentCircuit(Struct, frozen=True):
     """
 
     at: Mapping[str, str]
-    driven: frozenset[str]
+    driven: Mapping[str, complex]
     members: Mapping[str, tuple[str, ...]]
     nodes: tuple[str, ...]
     resistors: tuple[Resistor, ...]
@@ -171,7 +171,7 @@ def equivalent_circuit(
     at = {node: hand.get(upper, GROUND) for node, upper in merged.items()}
     nodes = tuple(dict.fromkeys(hand[node] for node in order if hand[node] != GROUND))
     solved = _solve(network, hand, nodes, s)
-    moved = {node for node, v in zip(order[1:], solved.forced, strict=False) if v}
+    moved = {node: complex(v) for node, v in zip(order[1:], solved.forced, strict=False) if v}
     members: dict[str, list[str]] = {}
     for node, h in at.items():
         members.setdefault(h, []).append(node)
@@ -180,7 +180,7 @@ def equivalent_circuit(
     transformers = read_transformers(network, hand)
     return EquivalentCircuit(
         at=at,
-        driven=frozenset(node for node, upper in merged.items() if upper in moved),
+        driven={node: moved[upper] for node, upper in merged.items() if upper in moved},
         members={h: tuple(names) for h, names in members.items()},
         nodes=nodes,
         resistors=resistors,

@@ -32,7 +32,7 @@ def role_of(circuit: EquivalentCircuit, cell: Cell) -> str:
     if left_at is None:
         return "without signal"
     shared, degenerated, into_common, follower = ROLES.get(cell.words[0], ROLES["input"])
-    v_control, v_common = _at(circuit, cell.control), _at(circuit, cell.common)
+    v_control, v_common = _control(circuit, cell), _common(circuit, cell)
     if abs(v_common) > abs(v_control):
         return into_common
     if left_at == cell.common:
@@ -54,7 +54,7 @@ def leaves_at(circuit: EquivalentCircuit, cell: Cell) -> str | None:
 
     None where gm·(v_control − v_common) moves the circuit's output by less than 0.1 %.
     """
-    v = _at(circuit, cell.control) - _at(circuit, cell.common)
+    v = _control(circuit, cell) - _common(circuit, cell)
     to_output, to_common = _adjoint(circuit, cell.output), _adjoint(circuit, cell.common)
     if abs(cell.gm * v * (to_output - to_common)) < IDLE * abs(circuit.response):
         return None
@@ -75,6 +75,22 @@ def _control_node(circuit: EquivalentCircuit, cell: Cell) -> str:
     resistors = circuit.resistors_at.get(cell.control, ())
     lonely = len(resistors) == 1 and len(circuit.cells_at.get(cell.control, ())) == 1
     return circuit.resistors[resistors[0]].other(cell.control) if lonely else cell.control
+
+
+def _control(circuit: EquivalentCircuit, cell: Cell) -> complex:
+    return _terminal(circuit, cell, cell.control, cell.words[0])
+
+
+def _common(circuit: EquivalentCircuit, cell: Cell) -> complex:
+    return _terminal(circuit, cell, cell.common, cell.words[1])
+
+
+def _terminal(circuit: EquivalentCircuit, cell: Cell, node: str, word: str) -> complex:
+    """Give the voltage of a cell's terminal; one that a source drives directly, ground by hand, has the source's."""
+    if node != GROUND:
+        return _at(circuit, node)
+    at = (t.netlist_node for t in circuit.terminals if (t.owner, t.word, t.inner) == (cell.owner, word, GROUND))
+    return next((circuit.driven[node] for node in at if node in circuit.driven), 0j)
 
 
 def _at(circuit: EquivalentCircuit, node: str) -> complex:

@@ -146,7 +146,7 @@ def bias_network(bands: Bands, circuit: EquivalentCircuit) -> list[str]:
     inputs = {t.outer for t in circuit.terminals if t.word in CONTROL_WORDS and t.outer != GROUND}
     found = []
     for part in bands.network.parts:
-        if part.kind != "conductance" or part.label or circuit.driven & set(part.nodes):
+        if part.kind != "conductance" or part.label or circuit.driven.keys() & set(part.nodes):
             continue
         a, b = (circuit.at[node] for node in part.nodes)
         for here, far in ((a, b), (b, a)):
