@@ -16,6 +16,8 @@ from tauledger.report.shown import Shown, edge_places, shown
 from tauledger.report.wording import NO_NUMBER, number, part_titles
 
 EVERY = 3
+# From here on three digits would be written with a power of ten.
+THOUSAND = 999.5
 
 
 class Factor(Struct, frozen=True):
@@ -63,7 +65,7 @@ def cursor(review: Review) -> Cursor | None:
         start=min(range(len(at)), key=lambda k: abs(math.log(seen.frequency_hz[at[k]] / edge))),
         curves=tuple(curve.label.partition(",")[0] for curve in seen.curves),
         factors=tuple(
-            Factor(curve.part, titles.get(curve.part, curve.part), _seen_from(curve, rows), number(curve.factor, "", 3))
+            Factor(curve.part, titles.get(curve.part, curve.part), _seen_from(curve, rows), _size(curve.factor))
             for curve in curves
         ),
         places=tuple((math.log(seen.frequency_hz[k]) - log[0]) / (log[1] - log[0]) for k in at),
@@ -94,8 +96,12 @@ def _texts(seen: Shown, k: int, curves: tuple[MillerCurve, ...], known: tuple[fl
             texts += [NO_NUMBER, NO_NUMBER]
             continue
         size, angle = cmath.polar(complex(row.factor_real[there], row.factor_imag[there]))
-        texts += [number(size, "", 3), f"{_signed(math.degrees(angle), 0)}°"]
+        texts += [_size(size), f"{_signed(math.degrees(angle), 0)}°"]
     return tuple(texts)
+
+
+def _size(factor: float) -> str:
+    return f"{factor:.0f}" if abs(factor) >= THOUSAND else number(factor, "", 3)
 
 
 def _level(db: float) -> str:

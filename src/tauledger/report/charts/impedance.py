@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import textwrap
+
 from tauledger.record import ImpedanceFacts, Review
 from tauledger.report.charts.bode import degree_ticks, hertz_ticks
 from tauledger.report.charts.style import blank, light, styled, to_svg
@@ -9,7 +11,7 @@ from tauledger.report.impedances import SIDES
 from tauledger.report.wording import number
 
 # Two longer ones do not fit beside each other.
-WIDEST_NAME = 40
+WIDEST_NAME, NARROW_NAME = 40, 34
 COLORS = {"input": "exact", "output": "faster"}
 DASHES = ("-", (0, (5, 2)), (0, (1, 1.4)), (0, (5, 2, 1, 2)))
 
@@ -30,7 +32,9 @@ def impedance_chart(review: Review, *, narrow: bool = False) -> str:
             count[one.side] += 1
             look = {"color": light(COLORS[one.side]), "linewidth": 1.6}
             hz, ohm, deg = _finite(one)
-            upper.plot(hz, ohm, label=f"{SIDES[one.side]} {one.name}", linestyle=dashes, **look)
+            name = f"{SIDES[one.side]} {one.name}"
+            label = textwrap.fill(name, NARROW_NAME) if narrow else name
+            upper.plot(hz, ohm, label=label, linestyle=dashes, **look)
             lower.plot(hz, deg, linestyle=dashes, **look)
         upper.set_xscale("log")
         upper.set_yscale("log")

@@ -53,7 +53,13 @@ def _along(axes: Axes, told: tuple[Told, ...], heights: list[float], unit: str) 
         text = number(step.hz, "Hz") + ("" if step.change is None else f"\n{move(step.change)}")
         offset = (0, 5) if above else (0, -5)
         axes.annotate(
-            text, (k, heights[k]), offset, textcoords="offset points", ha="center", va="bottom" if above else "top"
+            text,
+            (k, heights[k]),
+            offset,
+            textcoords="offset points",
+            ha="center",
+            va="bottom" if above else "top",
+            bbox={"facecolor": light("paper"), "edgecolor": "none", "pad": 0.6},
         )
     axes.set_xticks(range(len(told)), [textwrap.fill(step.title, 15) for step in told])
     axes.tick_params(axis="x", length=0)
