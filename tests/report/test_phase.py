@@ -139,6 +139,8 @@ def test_page_and_markdown_have_both_sections() -> None:
     assert "Wanted: phase margin 60°: now 31.5°, missed by 28.5°." in text
     assert "left for the margin" in text
     assert "Unity gain by hand" in text
+    assert "- **dominant pole** 1/(2π·R1·C), R1 = 611 kΩ at y" in text
+    assert "- **f_u** gm1 = 401 µS (M2); the second pole sits below it" in text
 
 
 def test_csv_and_json_carry_them_field_for_field() -> None:

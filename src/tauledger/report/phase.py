@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from tauledger.record import PhaseBudget, Review
 from tauledger.report.layout import Block, Prose, Row, Section, Table
-from tauledger.report.tables.phase import budget_cells, formulas, step_cells, step_reasons
+from tauledger.report.tables.phase import budget_cells, step_cells, step_reasons, workings
 from tauledger.report.wording import number
 
 
@@ -16,9 +16,7 @@ def phase_used(review: Review) -> Section:
     head = (f"PHASE USED UP at {number(budget.at_hz, 'Hz', 4)}", "exact", "used", "by hand", "off", "by hand")
     rows = tuple(Row(cells) for cells in budget_cells(budget))
     blocks: list[Block] = [Table("lrrrrr", head, rows)]
-    if budget.stage:
-        blocks.append(Prose(f"stage: {budget.stage}", lead="  ", hang=4))
-    blocks += [Prose(f"{name}: {text}", lead="  ", hang=4) for name, text in formulas(budget)]
+    blocks += [Prose(f"{name}: {text}", lead="  ", hang=4) for name, text in workings(review)]
     blocks += _by_hand(budget)
     return Section(tuple(blocks), major=True)
 

@@ -19,8 +19,18 @@ def unity_section(review: Review) -> Section:
 
 
 def phase_section(review: Review) -> Section:
-    """Give the degrees that each pole and zero uses up."""
-    return Section("phase", "Phase used up at unity gain", phase.budget_grids(review))
+    """Give the degrees that each pole and zero uses up, with the formulas of paper, and f_u and margin by hand."""
+    budget = review.phase_budget
+    if budget is None:
+        return Section("phase", "", ())
+    blocks: list[Block] = [phase.phase_budget(budget)]
+    if worked := tuple(Item(lead, text) for lead, text in phase.workings(review)):
+        blocks.append(Items(worked))
+    if budget.by_hand:
+        blocks.append(phase.by_hand(budget))
+    if reasons := tuple(Item(step.figure, text) for step, text in phase.step_reasons(budget)):
+        blocks.append(Items(reasons))
+    return Section("phase", "Phase used up at unity gain", tuple(blocks))
 
 
 def wants_section(review: Review) -> Section:

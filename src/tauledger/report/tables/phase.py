@@ -6,7 +6,7 @@ import math
 
 from tauledger.record import PhaseBudget, PhaseRow, Review, UnityStep
 from tauledger.report.tables.grid import Grid, GridRow, columns
-from tauledger.report.wording import NO_NUMBER, coefficients, move, number
+from tauledger.report.wording import NO_NUMBER, coefficients, move, number, retitled
 
 NOTHING_DEG = 0.05
 Cells = tuple[str, ...]
@@ -24,16 +24,13 @@ def phase_budget(budget: PhaseBudget) -> Grid:
     *above, left = budget_cells(budget)
     rows = [*(GridRow(cells) for cells in above), GridRow(left, "sum")]
     heads = columns("pole or zero", "exact", "used", "by hand", "off", "used, by hand")
-    note = "; ".join(f"{name}: {text}" for name, text in formulas(budget))
-    stage = f"Stage: {budget.stage}. " if budget.stage else ""
-    return Grid(f"Phase used up at {number(budget.at_hz, 'Hz', 4)}", heads, tuple(rows), f"{stage}{note}")
+    return Grid(f"Phase used up at {number(budget.at_hz, 'Hz', 4)}", heads, tuple(rows))
 
 
 def by_hand(budget: PhaseBudget) -> Grid:
     """Give f_u and phase margin by hand beside exact."""
     rows = tuple(GridRow(step_cells(step)) for step in budget.by_hand)
-    reasons = "; ".join(f"{step.figure}: {why}" for step, why in step_reasons(budget))
-    return Grid("Unity gain by hand", columns("figure", "by hand", "exact", "off"), rows, reasons)
+    return Grid("Unity gain by hand", columns("figure", "by hand", "exact", "off"), rows)
 
 
 def budget_cells(budget: PhaseBudget) -> tuple[Cells, ...]:
@@ -72,12 +69,13 @@ def step_reasons(budget: PhaseBudget) -> tuple[tuple[UnityStep, str], ...]:
     return tuple((step, text) for step, text in told if text)
 
 
-def budget_grids(review: Review) -> tuple[Grid, ...]:
-    """Give the tables of the phase budget, none where the review has none."""
+def workings(review: Review) -> tuple[tuple[str, str], ...]:
+    """Give lead and text of what stands below the poles and zeros: the stage, and every formula with its operands."""
     budget = review.phase_budget
     if budget is None:
         return ()
-    return (phase_budget(budget), *((by_hand(budget),) if budget.by_hand else ()))
+    stage = (("stage", retitled(budget.stage, review.parts)),) if budget.stage else ()
+    return (*stage, *formulas(budget))
 
 
 def _cells(row: PhaseRow) -> Cells:
