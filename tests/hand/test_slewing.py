@@ -175,6 +175,27 @@ def test_push_pull_followers_are_not_judged(engine: Engine, tmp_path: Path) -> N
     assert len(found.not_judged) == 2
 
 
+def test_what_controlled_sources_and_folded_instances_move_is_named_as_not_judged(
+    engine: Engine, tmp_path: Path
+) -> None:
+    path = written(
+        tmp_path,
+        "VDD vdd 0 5",
+        "VIN in 0 DC 1.1 AC 1",
+        "RS in g 1k",
+        "G1 0 x g 0 1m",
+        "R1 x 0 1k",
+        "C1 x 0 1p",
+        "M2 out x 0 0 mn w=10u l=1u",
+        "R9 vdd out 2k",
+        "CL out 0 5p",
+        NMOS,
+    )
+    found = judged(path, engine)
+    assert [slew.node for slew in found.nodes] == ["out"]
+    assert found.not_judged == ("output of G1, gate of M2 (x)",)
+
+
 def test_a_current_source_is_a_load_and_no_driver(engine: Engine) -> None:
     """At the folded cascode's output Q2 stands still; only Q1 brings signal."""
     found = {slew.node: slew for slew in judged(FIXTURES / "hydrophone.cir", engine).nodes}

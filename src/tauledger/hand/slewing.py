@@ -17,10 +17,12 @@ from msgspec import Struct
 from tauledger.circuit import GROUND
 from tauledger.devices.family import Device, Transconductor
 from tauledger.hand.estimate import SignalNode
+from tauledger.hand.nodes import block_of
 from tauledger.network.bands import Bands
 from tauledger.network.solve import on_axis, solve
 
 STANDING = ("i_c", "i_d")
+SOURCES = ("transconductance", "delayed transconductance", "voltage gain", "current gain", "transresistance")
 # A transistor that gives less than this part of the largest signal current at a node does not drive it.
 DRIVES = 0.1
 # One whose mid-band current is less than this part of the largest is reached through capacitances alone: a load.
@@ -111,11 +113,16 @@ def slewing(
     """
     scene = _scene(bands, devices, rows, f_high_hz or bands.midband.frequency_hz)
     drivers = {k: found for k in range(len(rows)) if (found := _drivers(k, scene))}
+    ideal = _moved_by_sources(bands, scene)
     output = abs(bands.midband.gain)
     nodes: list[Slew] = []
     not_judged: list[str] = []
     for k, row in enumerate(rows):
-        if not row.in_path or row.second or k not in drivers:
+        if not row.in_path or row.second:
+            continue
+        if k not in drivers:
+            if k in ideal:
+                not_judged.append(row.title)
             continue
         behind = _behind(k, rows, scene, drivers)
         moved = {k, *(behind or ())}
@@ -197,6 +204,19 @@ def _active(cells: Sequence[Transconductor], at: Mapping[str, int], moving: Mapp
         if not more:
             return frozenset(cell.owner for cell in active)
         active += more
+
+
+def _moved_by_sources(bands: Bands, scene: _Scene) -> frozenset[int]:
+    """Give the rows that controlled sources or the inside of a folded instance move: no current is known there."""
+    found: set[int] = set()
+    for part in bands.network.parts:
+        if part.owner in scene.standing:
+            continue
+        if part.kind == "block":
+            found |= {scene.at[node] for node in part.nodes if block_of(node) and node in scene.at}
+        elif part.kind in SOURCES:
+            found |= {scene.at[node] for node in part.nodes[:2] if node in scene.at}
+    return frozenset(found)
 
 
 def _drivers(k: int, scene: _Scene) -> tuple[_Driver, ...]:

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from tauledger.record import Review, SlewFacts
-from tauledger.report.layout import HEADING, Block, Prose, Row, Section, Table
+from tauledger.report.layout import CAUTION, Block, Prose, Row, Section, Table
 from tauledger.report.wording import nominal, number
 
 # Unit, its size and the slew rate in V/s from which on it is used.
@@ -15,7 +15,8 @@ def large_signal(review: Review, *, verbose: bool = False) -> Section:
     facts = review.large_signal
     if facts is None:
         return Section(())
-    blocks: list[Block] = [Prose(first_limit(review), lead="LARGE SIGNAL ", style=HEADING, hang=2)]
+    below = any(cause.cause == "slews-first" for cause in review.causes)
+    blocks: list[Block] = [Prose(first_limit(review), lead="LARGE SIGNAL ", style=CAUTION if below else "", hang=2)]
     if verbose:
         head = ("  at", "by", "can give", "into", "slew rate", "to the output", "full power")
         rows = tuple(Row(cells(node)) for node in facts.nodes)
