@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import ast
 import math
 import re
 from pathlib import Path
@@ -9,6 +10,7 @@ from pathlib import Path
 import pytest
 from msgspec.structs import replace
 
+import tauledger
 from report.literal import ECHO_PREAMP
 from tauledger.record import (
     AgreementFacts,
@@ -21,6 +23,7 @@ from tauledger.record import (
     Review,
     Working,
 )
+from tauledger.report.layout import SYMBOLS
 from tauledger.report.terminal import render
 
 PAGE = Path(__file__).with_name("terminal.txt")
@@ -237,3 +240,25 @@ def test_verbose_shows_every_node_part_pole_and_the_working() -> None:
     assert text.count("\n  pole ") == len(ECHO_PREAMP.poles)
     assert "RC ‖ RL ‖ r_o(Q1) = 2.2k ‖ 10k ‖ 31.0k = 1.704k" in text
     assert "Stages  b 0.6659 → out -179.1" in text
+
+
+def written(module: Path) -> set[str]:
+    """The characters outside of ASCII in the texts of a module, its docstrings apart."""
+    tree = ast.parse(module.read_text(encoding="utf-8"))
+    docstrings = {
+        id(node.body[0].value)
+        for node in ast.walk(tree)
+        if isinstance(node, ast.Module | ast.FunctionDef | ast.ClassDef) and ast.get_docstring(node) is not None
+        if isinstance(node.body[0], ast.Expr)
+    }
+    texts = [node for node in ast.walk(tree) if isinstance(node, ast.Constant) and isinstance(node.value, str)]
+    return {c for node in texts if id(node) not in docstrings for c in str(node.value) if not c.isascii()}
+
+
+# Set by the page alone, shown in messages only, or white space.
+ELSEWHERE = {"\u00a0", "\u200b", "\ufeff", "␡", "�", "○"}
+
+
+def test_every_symbol_that_the_program_writes_has_a_spelling_in_ascii() -> None:
+    found = {c for module in (Path(tauledger.__file__).parent).rglob("*.py") for c in written(module)}
+    assert found - ELSEWHERE <= set(SYMBOLS), sorted(found - ELSEWHERE - set(SYMBOLS))

@@ -47,12 +47,16 @@ _ASCII = {
     "⁰": "0",
     "⁻": "-",
     "¹": "1",
-    "₁": "1",
-    "₂": "2",
+    "³": "^3",
+    **dict(zip("⁴⁵⁶⁷⁸⁹", "456789", strict=True)),
+    **dict(zip("₀₁₂₃₄₅₆₇₈₉", "0123456789", strict=True)),
+    "Π": "prod",
     "½": "1/2",
     "°": " deg",
     "†": "*",
     "‡": "**",
+    "§": "#",
+    "¶": "##",
     "“": '"',
     "”": '"',
     "’": "'",
@@ -184,14 +188,15 @@ def _table(table: Table, *, width: int, unicode: bool) -> list[Line]:
     first = max((size for size in names if size <= room[gap]), default=0)
     lines: list[Line] = []
     if cells(head[0]) > first + table.indent:
-        lines.append(Line(head[0], HEADING))
+        lines += _prose(Prose(head[0], style=HEADING, hang=2 * table.indent), width=width, unicode=unicode)
         head = ("", *head[1:])
     if any(head):
         lines.append(Line(_join(head, table.align, [first + table.indent, *others], gap), HEADING))
     for row in rows:
         numbers = row.cells
         if cells(row.cells[0]) > first:
-            lines.append(Line(indent + row.cells[0], row.style))
+            name = Prose(row.cells[0], lead=indent, style=row.style, hang=2 * table.indent)
+            lines += _prose(name, width=width, unicode=unicode)
             numbers = ("", *row.cells[1:])
         lines.append(Line(indent + _join(numbers, table.align, [first, *others], gap), row.style))
     return lines
