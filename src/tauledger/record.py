@@ -155,7 +155,8 @@ class CapacitanceTerm(Struct, frozen=True):
 
     time_constant_s: what it adds to the node's row, with the resistance at its own place (an inner node of a device
     faces another one than the outer). text: how K came about, empty where the other end is at AC ground.
-    edge_factor_*: 1 − K at f_H, None where the other end is at AC ground or there is no f_H.
+    edge_factor_*: 1 − K at f_H, None where the other end is at AC ground or there is no f_H. gain_source: of K, rule
+    or solved.
     """
 
     part: str
@@ -167,6 +168,7 @@ class CapacitanceTerm(Struct, frozen=True):
     text: str = ""
     edge_factor_real: float | None = None
     edge_factor_imag: float | None = None
+    gain_source: str = "rule"
 
 
 class WorkingLine(Struct, frozen=True):

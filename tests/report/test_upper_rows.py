@@ -7,8 +7,10 @@ from pathlib import Path
 
 import pytest
 
+from amplifiers import coupled_stage
+from role_boards import ROLE_BOARDS
 from tauledger.engine.client import Engine
-from tauledger.pipeline import review
+from tauledger.pipeline import review, review_network
 from tauledger.report.terminal import render
 
 FIXTURES = Path(__file__).parents[2] / "fixtures"
@@ -65,5 +67,24 @@ CL out 0 100p
     page = render(found, color=False, unicode=True)
     assert min(by_hand) > 0.10
     assert not any(row.recommended for row in found.estimates if row.edge == "f_high")
-    assert "no method by hand comes within 10 %" in " ".join(page.split())
+    assert "no method recommended: the time constants pull each other" in " ".join(page.split())
     assert "further-poles" in [cause.cause for cause in found.causes]
+
+
+def test_a_factor_whose_gain_was_solved_is_marked(tmp_path: Path, engine: Engine) -> None:
+    """Two followers at rest with joined emitters: no chain of hand gains says how far one moves with the other."""
+    path = tmp_path / "class_ab.cir"
+    path.write_text(ROLE_BOARDS["class-AB followers at rest"].netlist, encoding="utf-8")
+    found = review(path, engine=engine)
+    sources = {
+        term.part: term.gain_source for node in found.nodes if node.working for term in node.working.capacitances
+    }
+    page = render(found, color=False, unicode=True)
+    assert "solved" in sources.values()
+    marked = [line for line in page.splitlines() if " × " in line and "†" in line]
+    assert marked
+    assert all("†" not in line for line in page.splitlines() if line.startswith("    C_μ of Q2"))
+    plain = review_network(coupled_stage(), title="")
+    assert "†" not in "".join(
+        line for line in render(plain, color=False, unicode=True).splitlines(keepends=True) if " × " in line
+    )

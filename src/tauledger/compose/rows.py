@@ -220,6 +220,7 @@ def _capacitance_term(line: InnerLine, term: MillerTerm, explanation: Explanatio
         text=term.text,
         edge_factor_real=at_edge.real if at_edge is not None else None,
         edge_factor_imag=at_edge.imag if at_edge is not None else None,
+        gain_source=term.source,
     )
 
 

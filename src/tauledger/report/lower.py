@@ -78,11 +78,11 @@ def _row(group: list[PartRow], f_low: float | None) -> Row:
     )
 
 
-def ends(part: PartRow) -> str:
+def ends(part: PartRow, before: str = ", ") -> str:
     """Say where a part stands, ", e to ground"; nothing of one that reaches inside a transformer."""
     if any("'" in node for node in part.nodes):
         return ""
-    return f", {' to '.join('ground' if node == '0' else node for node in part.nodes)}"
+    return before + " to ".join("ground" if node == "0" else node for node in part.nodes)
 
 
 def _sums(budget: LowerBudget) -> str:

@@ -8,7 +8,7 @@ import re
 from msgspec import Struct
 
 from tauledger.record import CauseFacts, EdgeFacts, Help, NodeRow, NoteFacts, PartRow, PoleFacts, Review
-from tauledger.report.lower import in_parallel
+from tauledger.report.lower import ends, in_parallel
 from tauledger.report.tables.helps import change, kind
 from tauledger.report.tables.setting import output_text
 from tauledger.report.tables.upper import counting_nodes, places, term_seconds, whole_s
@@ -318,13 +318,12 @@ def _what_sets_the_lower_edge(review: Review) -> str:
     group = max(groups, key=taken)
     part = group[0]
     names = " ‖ ".join(part_title(one.name, one.owner) for one in group)
-    ends = " to ".join("ground" if node == "0" else node for node in part.nodes)
     value = nominal(math.fsum(one.value for one in group), part_unit(part.kind))
     ohm = part.resistance_exact_ohm if part.resistance_hand_ohm is None else part.resistance_hand_ohm
     zero = "" if not part.zero_hz else f", with a zero at {number(part.zero_hz, 'Hz')}"
     text = (
-        f"{names}, {value} from {ends}, has a share of {fraction(taken(group))}: with R {number(ohm, 'Ω')} its edge "
-        f"alone is {number(part.edge_hz, 'Hz')}{zero}."
+        f"{names}, {value}{ends(part, ' from ')}, has a share of {fraction(taken(group))}: with R {number(ohm, 'Ω')} "
+        f"its edge alone is {number(part.edge_hz, 'Hz')}{zero}."
     )
     best = next((e for e in review.estimates if e.edge == "f_low" and e.recommended), None)
     if best is not None and best.hz is not None and best.difference is not None:

@@ -57,6 +57,8 @@ def upper_budget(review: Review, *, verbose: bool = False) -> Section:
     blocks: list[Block] = [Table("lrrrrr", head, tuple(rows))]
     if any(_mark(node) == SOLVED for node in shown) or any(row.source == "solved" for row in coils):
         blocks.append(Prose("solved exactly: none of the rules fits this node", lead=f"  {SOLVED} "))
+    elif any(cell.endswith(SOLVED) for row in rows for cell in row.cells):
+        blocks.append(Prose("K solved exactly: no chain of hand gains fits", lead=f"  {SOLVED} "))
     if any(_mark(node) == LOOP for node in shown):
         blocks.append(Prose(by_loop(review), lead=f"  {LOOP} "))
     if review.budget.upper:
@@ -198,7 +200,8 @@ def _own_resistance(term: CapacitanceTerm, node: NodeRow) -> str:
 
 def _times(term: CapacitanceTerm) -> str:
     """Show the Miller factor where it is one: " 2.16 pF × 180.1"."""
-    return "" if abs(term.factor - 1.0) < 5e-4 else f" {number(term.farad, 'F', 3)} × {term.factor:.4g}"
+    solved = SOLVED if term.gain_source == "solved" else ""
+    return "" if abs(term.factor - 1.0) < 5e-4 else f" {number(term.farad, 'F', 3)} × {term.factor:.4g}{solved}"
 
 
 def _sums(budget: UpperBudget, *, halves: bool, delay: str) -> str:

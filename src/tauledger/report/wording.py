@@ -20,6 +20,7 @@ _PART_UNIT |= {"mutual inductance": "H", "line": "s"}
 # does not.
 _COEFFICIENT = re.compile(
     r"(?<=[/·√])[ab][1-9]\b|\b[ab][1-9](?=/(?:[ab][1-9]\b|\(?2π))|\ba1(?= is the first)|\b[ab][1-9](?=·s)"
+    r"|(?<=·s \+ )[ab][1-9]\b"
     r"|(?:(?<!nodes )(?<!between )\b(?:a1 and a2|b1 and b2)|(?<=coefficients )(?:a1, a2|b1, b2))\b"
 )
 EDGE = {"f_high": "f_H", "f_low": "f_L"}

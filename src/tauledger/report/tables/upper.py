@@ -99,6 +99,9 @@ def _remarks(nodes: Iterable[NodeRow], review: Review) -> list[str]:
     marks = {_mark(node) for node in nodes}
     if f" {SOLVED}" in marks:
         told.append(f"{SOLVED} solved exactly: none of the rules fits this node.")
+    terms = [term for node in nodes if node.working is not None for term in node.working.capacitances]
+    if any(term.gain_source == "solved" and abs(term.factor - 1.0) >= 5e-4 for term in terms):
+        told.append(f"{SOLVED} after a factor: K solved exactly, no chain of hand gains fits.")
     if f" {LOOP}" in marks:
         told.append(f"{LOOP} {by_loop(review)}.")
     if any((node.time_constant_s or 0.0) < 0.0 for node in nodes):
@@ -190,7 +193,12 @@ def term_text(term: CapacitanceTerm) -> str:
     """Write a capacitance with its Miller factor where it has one: "1.20 pF × 115.8 = 138.7 pF"."""
     if abs(term.factor - 1.0) < 5e-4:
         return number(term.farad, "F")
-    return f"{number(term.farad, 'F', 3)} × {term.factor:.4g} = {number(term.farad * term.factor, 'F')}"
+    return f"{_product(term)} = {number(term.farad * term.factor, 'F')}"
+
+
+def _product(term: CapacitanceTerm) -> str:
+    solved = f" {SOLVED}" if term.gain_source == "solved" else ""
+    return f"{number(term.farad, 'F', 3)} × {term.factor:.4g}{solved}"
 
 
 def term_seconds(term: CapacitanceTerm, node: NodeRow) -> float:
@@ -265,7 +273,7 @@ def _term_rows(node: NodeRow, titles: Mapping[str, str], whole: float) -> list[G
 
 def _term_row(term: CapacitanceTerm, node: NodeRow, titles: Mapping[str, str], whole: float) -> GridRow:
     seconds = term_seconds(term, node)
-    times = "" if abs(term.factor - 1.0) < 5e-4 else f", {number(term.farad, 'F', 3)} × {term.factor:.4g}"
+    times = "" if abs(term.factor - 1.0) < 5e-4 else f", {_product(term)}"
     cells = (
         titles.get(term.part, term.part) + times,
         "",
