@@ -6,6 +6,8 @@ working.py  one signal node worked out
 helps.py    what 10 % less of one element does to edges and gain
 lower.py    coupling and bypass capacitors
 roots.py    poles and zeros with the names that charts and table share
+phase.py    degrees used by poles and zeros at unity gain, exact and by hand
+wants.py    what a wanted figure takes
 way.py      estimates from the lowest node to the simulation, methods, reruns
 outside.py  figures of a page of one's own, values set
 setting.py  drive and load, stages, devices, lines of the netlist, versions
