@@ -56,13 +56,15 @@ def phase_budget(found: Review, subject: Subject) -> PhaseBudget | None:
     stage, by_hand = paper.stage, paper.roots
     shown, rows = _rows(used, by_hand, subject.explanation.hand_poles, mid, hz)
     rest = [one for one in (*used.poles, *used.zeros) if one not in shown]
+    # what measuring aids make far below the band are poles and zeros too, which the map leaves out
+    of_aids = used.rest if not (numbers.network.delayed or numbers.network.lines) else 0.0
     return PhaseBudget(
         at_hz=hz,
         margin_deg=margin,
         rows=rows,
         others=len(rest),
-        others_deg=sum(one.degrees for one in rest),
-        rest_deg=used.rest,
+        others_deg=sum(one.degrees for one in rest) + of_aids,
+        rest_deg=used.rest - of_aids,
         stage="" if stage is None or not _makes_a_pole(rows) else _stage_text(stage),
         by_hand=() if stage is None else _steps(stage, by_hand, rows, hz, margin),
     )
