@@ -16,19 +16,19 @@ from tauledger.causes.catalogue import find_causes, find_notes
 from tauledger.causes.cause import Cause, Note
 from tauledger.causes.evidence import EdgeEvidence, Evidence
 from tauledger.causes.line_left_out import in_words
+from tauledger.devices.family import Device
 from tauledger.hand.at_edge import edge_factors
 from tauledger.hand.budget import part_resistances, signal_nodes
 from tauledger.hand.combine import Combined, combine_lower, combine_upper
 from tauledger.hand.effects import pole_effects
-from tauledger.hand.estimate import HandEstimate
+from tauledger.hand.estimate import HandEstimate, InductorRow
 from tauledger.hand.halves import images
-from tauledger.hand.inductors import inductor_rows
 from tauledger.hand.lower import lower_rows, nearest_zero_owner
-from tauledger.hand.lower_poles import with_lower_poles
 from tauledger.hand.methods import methods, none_recommended, weighted_lower, weighted_upper
 from tauledger.hand.poles import HandPole, hand_poles
 from tauledger.hand.stages import stage_rows
 from tauledger.hand.steps import lower_steps, upper_steps
+from tauledger.network.bands import Bands
 from tauledger.network.constants import OpenConstants, open_constants
 from tauledger.network.edges import Edge
 from tauledger.network.identities import (
@@ -95,6 +95,7 @@ def explain(numbers: Numbers) -> Explanation:
         open_rows, short_rows = open_constants(bands), short_constants(bands)
         check((*open_identities(open_rows), *weight_identities(bands, open_rows), *short_identities(short_rows)))
         hand, upper, lower = _by_hand(numbers, open_rows, short_rows, rest)
+    less = each_scaled(network, midband, edges, TEN_PERCENT_LESS)
     evidence = Evidence(
         bands=bands,
         poles=poles,
@@ -109,6 +110,7 @@ def explain(numbers: Numbers) -> Explanation:
         images=images(hand.nodes) if hand else {},
         lines=network.lines,
         followed_to_hz=_followed_to_hz(numbers),
+        ten_percent_less={name: pair.f_high for name, pair in less.items()} if network.lines else {},
     )
     effects: dict[complex, float] = {}
     for combined, is_lower in ((upper, False), (lower, True)):
@@ -117,7 +119,7 @@ def explain(numbers: Numbers) -> Explanation:
     return Explanation(
         shares_high=shares_high,
         shares_low=shares_low,
-        ten_percent_less=each_scaled(network, midband, edges, TEN_PERCENT_LESS),
+        ten_percent_less=less,
         open=open_rows,
         short=short_rows,
         hand=hand,
@@ -127,6 +129,14 @@ def explain(numbers: Numbers) -> Explanation:
         notes=find_notes(evidence),
         edge_factors=_edge_factors(numbers, hand),
     )
+
+
+def _inductors(bands: Bands, devices: tuple[Device, ...], constants: OpenConstants) -> tuple[InductorRow, ...]:
+    if not any(part.kind == "inductance" for part in constants.parts):
+        return ()
+    from tauledger.hand.inductors import inductor_rows
+
+    return inductor_rows(bands, devices, constants)
 
 
 def _poles_by_hand(
@@ -140,8 +150,11 @@ def _poles_by_hand(
         upper=upper.coefficients if upper else None,
         lower=lower.coefficients if lower else None,
     )
-    if hand is None or not hand.lower:
+    edge = 2.0 * np.pi * numbers.midband.frequency_hz
+    if hand is None or not hand.lower or all(one.formula for one in told if abs(one.pole) <= edge):
         return told
+    from tauledger.hand.lower_poles import with_lower_poles
+
     owners = {pole.s: pole.owners for pole in numbers.poles.poles}
     return with_lower_poles(told, cancelled, numbers.bands, numbers.devices, hand.lower, owners)
 
@@ -206,7 +219,7 @@ def _by_hand(
         omega = abs(bands.s_mid)
         upper_poles, upper_zeros = (roots[np.abs(roots) > omega] for roots in (upper_poles, upper_zeros))
         lower_poles, lower_zeros = (roots[np.abs(roots) < omega] for roots in (lower_poles, lower_zeros))
-    inductors = inductor_rows(bands, devices, constants)
+    inductors = _inductors(bands, devices, constants)
     upper = combine_upper(nodes, upper_poles, upper_zeros, inductors)
     lower = combine_lower(capacitors, lower_poles, lower_zeros)
     estimates = methods(

@@ -85,3 +85,18 @@ def test_a_note_says_how_far_a_ripple_is_followed() -> None:
     )
     (note,) = [note for note in found.notes if note.note == "ripple-followed"]
     assert "followed up to 8.33 MHz" in note.says
+
+
+def test_a_note_says_where_ten_per_cent_less_moves_the_edge_to_another_dip() -> None:
+    """The long dips come nearer when the line is shorter, and another one is first to reach -3 dB."""
+    rippling = network(
+        *(resistance("RS", "in", "near", 50.0), capacitance("CN", "near", "0", 2e-12)),
+        line("T1", ENDS, 5e-8, 75.0),
+        *(resistance("RL", "out", "0", 120.0), capacitance("CL", "out", "0", 1e-12)),
+    )
+    found = explain(solve_network(rippling))
+    (note,) = [note for note in found.notes if note.note == "another-dip"]
+    assert note.where == "f_H"
+    assert "10 % less of delay of T1 moves it to another, by -0.01 %, where its share, 97 %," in note.says
+    smooth = explained(line("T1", ENDS, 5e-9, 50.0), 1e6, capacitance("CL", "out", "0", 20e-12))
+    assert "another-dip" not in [note.note for note in smooth.notes]

@@ -23,6 +23,7 @@ from tauledger.network.lines import at_rest, lumped, require_held_ends
 from tauledger.network.midband import MidBand, find_midband
 from tauledger.network.poles import find_poles
 from tauledger.network.recompute import each_scaled, edge_frequencies, scaled
+from tauledger.network.ripple import followed
 from tauledger.network.shares import Shares, find_shares
 from tauledger.network.solve import DENSE_LIMIT, Complex, Real, log_slope, on_axis, response, solve
 from tauledger.network.unity import find_unity
@@ -342,3 +343,18 @@ def test_one_lumped_section_is_right_far_below_the_first_resonance(kind: str) ->
     made = stage(LINES[kind])
     f = np.array([1e3, 1e5, 1e6])
     assert np.allclose(response(lumped(made), f), response(made, f), rtol=1e-3, atol=0.0)
+
+
+def test_phase_is_followed_as_far_as_it_is_asked_for() -> None:
+    delay = 2e-7
+    made = driven(50.0, line("T1", ENDS, delay, 50.0), 50.0, capacitance("CN", "near", "0", 20e-12))
+    _, edges = edges_of(made)
+    assert edges.angle is not None
+    hz = 1234.56e6
+    h = response(made, np.array([hz]))
+    angle, end_hz = followed(made, edges.angle, hz, 100_000)
+    assert end_hz >= hz
+    # 25 Ω and 20 pF at the near end, the delay behind
+    turned = -math.degrees(math.atan(2.0 * math.pi * hz * 0.5e-9)) - 360.0 * hz * delay
+    assert angle.along(np.array([hz]), h)[0] == pytest.approx(turned, abs=1e-6)
+    assert followed(made, edges.angle, hz, 100)[1] < hz

@@ -21,6 +21,8 @@ from tauledger.simulated import Simulated
 WORTH_A_FRACTION = 5e-3
 WORTH_DEGREES = 0.1
 DEGREE = 0.01
+# How many frequencies at most say how often lines have turned the phase.
+MOST_FOLLOWED = 100_000
 
 
 def at_facts(subject: Subject, at_hz: tuple[float, ...]) -> tuple[AtFacts, ...]:
@@ -68,6 +70,11 @@ def _degrees(h: complex) -> float:
 
 def _beyond_midband(numbers: Numbers, hz: float, h: complex) -> float:
     angle = numbers.edges.angle
+    if numbers.network.lines and angle is not None:
+        from tauledger.network.ripple import followed
+
+        angle, end_hz = followed(numbers.network, angle, hz, MOST_FOLLOWED)
+        angle = angle if hz <= end_hz else None
     if angle is None:
         return float(np.angle(h / numbers.midband.gain, deg=True))
     return angle.beyond_midband(hz, h)

@@ -15,6 +15,7 @@ from tauledger.causes.further_poles import further_poles_above, further_poles_be
 from tauledger.causes.gain_falls_first import gain_falls_first
 from tauledger.causes.interaction import interaction_above, interaction_below
 from tauledger.causes.line_left_out import (
+    another_dip,
     line_left_out_above,
     line_left_out_below,
     lines_as_at_dc,
@@ -70,6 +71,7 @@ NOTES: tuple[Callable[[Evidence], Note | None], ...] = (
     notes.tuned,
     notes.coupled,
     lines_as_at_dc,
+    another_dip,
     ripple_followed_so_far,
     notes.ideal_drive,
     notes.model_without_charge,

@@ -54,7 +54,8 @@ class Evidence(Struct, frozen=True):
     poles, zeros: of the full network in rad/s (n,), (m,). devices: empty where the network was not read from a netlist.
     images: the node of the other half by that of the first, where a balanced circuit is worked as half circuits.
     stepped: the engine found the operating point only by stepping. lines: the network's lines, which `bands` takes
-    as at DC; followed_to_hz: how far the scan follows their ripple.
+    as at DC; followed_to_hz: how far the scan follows their ripple; ten_percent_less: f_H in Hz with one part
+    at a time 10 % smaller, by part name, given with lines alone.
     """
 
     bands: Bands
@@ -69,6 +70,7 @@ class Evidence(Struct, frozen=True):
     images: Mapping[str, str] = {}
     lines: tuple[Part, ...] = ()
     followed_to_hz: float | None = None
+    ten_percent_less: Mapping[str, float | None] = {}
     inductors: tuple[InductorRow, ...] = ()
 
 
@@ -128,6 +130,8 @@ def in_words(part: Part) -> str:
     """Name a part as the trade does: "CL" for a card, "C_μ of Q1" inside a device."""
     if not part.label:
         return part.owner
+    if part.kind == "line":
+        return f"{'R·C' if part.label == 'rc' else part.label} of {part.owner}"
     head, _, tail = part.label.partition("_")
     return f"{head.upper()}{'_' if tail else ''}{GREEK.get(tail, tail)} of {part.owner}"
 

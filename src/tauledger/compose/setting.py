@@ -14,6 +14,7 @@ from tauledger.circuit import GROUND, Circuit, fold
 from tauledger.devices.family import Device
 from tauledger.explain import Explanation
 from tauledger.netlist import Netlist, place
+from tauledger.network.angle import Angle
 from tauledger.network.solve import Complex, response
 from tauledger.numbers import Numbers
 from tauledger.record import Curves, DeviceFacts, DriveFacts, Figure, LoadFacts, OutputFacts, SourceLine
@@ -24,6 +25,7 @@ from tauledger.solution import Sweep
 HAZARDOUS_VOLT = 60.0
 LINES_FOR_SHARE = 0.01
 MOST_OF_A_RIPPLE = 1500
+MOST_TURNS = 8000
 LIMITS = 0.005
 WORD = re.compile(r"(?<![\w.])(?:\w+\.)*[rR]\w*(?![\w(.])")
 SOURCES = ("voltage source", "current source")
@@ -98,8 +100,17 @@ def curves(numbers: Numbers, explanation: Explanation) -> Curves | None:
     frequency = swept.frequency_hz if swept is not None else numbers.edges.frequency_hz
     if not len(frequency):
         return None
-    sweep = _polar(swept.response) if swept is not None else (None, None)
-    exact = _polar(response(numbers.network, frequency)) if numbers.trusted else (None, None)
+    angle: Angle | None = None
+    if numbers.network.lines and numbers.trusted and numbers.edges.angle is not None:
+        from tauledger.network.ripple import followed
+
+        # beyond, nobody can say how often a line has turned the phase
+        angle, end_hz = followed(numbers.network, numbers.edges.angle, float(frequency[-1]), MOST_TURNS)
+        shown = frequency <= end_hz
+        frequency = frequency[shown]
+        swept = Sweep(frequency, swept.response[shown]) if swept is not None else None
+    sweep = _polar(swept.response, frequency, angle) if swept is not None else (None, None)
+    exact = _polar(response(numbers.network, frequency), frequency, angle) if numbers.trusted else (None, None)
     hand = _hand_response(numbers, explanation, frequency)
     by_hand = _polar(hand) if hand is not None else (None, None)
     return Curves(tuple(frequency.tolist()), *sweep, *exact, *by_hand)
@@ -190,7 +201,11 @@ def _hand_response(numbers: Numbers, explanation: Explanation, frequency: NDArra
     return gain
 
 
-def _polar(h: Complex) -> tuple[tuple[float, ...], tuple[float, ...]]:
+def _polar(
+    h: Complex, frequency_hz: NDArray[np.float64] | None = None, angle: Angle | None = None
+) -> tuple[tuple[float, ...], tuple[float, ...]]:
     magnitude = 20.0 * np.log10(np.maximum(np.abs(h), np.finfo(float).tiny))
     phase = np.degrees(np.unwrap(np.angle(h)))
+    if angle is not None and frequency_hz is not None:
+        phase = angle.along(frequency_hz, h) + float(np.angle(angle.midband.gain, deg=True))
     return tuple(magnitude.tolist()), tuple(phase.tolist())

@@ -9,11 +9,14 @@ from __future__ import annotations
 
 import numpy as np
 
+from tauledger.network.angle import Angle, scanned_angle
 from tauledger.network.assemble import Network
 from tauledger.network.lines import delay_of_waves
 from tauledger.network.solve import Complex, Real, response
 
 PER_PERIOD = 24
+# Between two of so many frequencies a period, the phase turns by an eighth of a turn or so.
+PER_TURN = 8
 # What an even logarithmic sweep has beside it.
 SWEPT_PER_DECADE = 40
 AROUND = 33
@@ -85,6 +88,27 @@ def ripple_grids(network: Network, f_high_hz: float | None, stop_hz: float) -> t
             around = (np.linspace(f_high_hz - spacing, f_high_hz + spacing, AROUND),)
     count = min(int((stop_hz - low) / spacing) + 1, MOST_POINTS)
     return around if count < AROUND else (np.linspace(low, low + (count - 1) * spacing, count), *around)
+
+
+def followed(network: Network, angle: Angle, to_hz: float, most: int) -> tuple[Angle, float]:
+    """Give the phase followed to to_hz, and how far in Hz it is followed with `most` frequencies.
+
+    angle: of the edges' scan, which follows it as far as |H| does.
+    """
+    spacing = spacing_hz(network)
+    if spacing is None:
+        return angle, to_hz
+    spacing *= PER_PERIOD / PER_TURN
+    to_hz = max(to_hz, angle.midband.frequency_hz)
+    low = spacing * SWEPT_PER_DECADE / np.log(10.0)
+    count = int((to_hz - low) / spacing) + 2
+    if count < 2:
+        return angle, to_hz
+    frequency: Real = low + spacing * np.arange(min(count, most))
+    nearer = angle.scan_hz < low
+    below = (angle.scan_hz[nearer], response(network, angle.scan_hz[nearer]))
+    scan = _merged(below, (frequency, response(network, frequency)))
+    return scanned_angle(angle.midband, *scan), to_hz if count <= most else float(frequency[-1])
 
 
 def _closer(network: Network, frequency_hz: Real, h: Complex, level: float) -> tuple[Real, Complex]:
