@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable
 from itertools import product
 
+import numpy as np
 import pytest
 from msgspec.structs import replace
 
@@ -16,7 +17,9 @@ from tauledger.devices.bsim import BSIM4, _overlap
 from tauledger.devices.catalogue import choose, fitting, isolations, linearise
 from tauledger.devices.family import Device, Refusal
 from tauledger.devices.field_effect import mos_region
+from tauledger.devices.parts import resistance
 from tauledger.engine.client import Engine
+from tauledger.engine.grid import decades
 from tauledger.network.assemble import Network
 
 
@@ -343,6 +346,40 @@ def test_conductance_of_the_reversed_body_diode_is_that_of_the_engine(
         )
         _, device = assert_agrees(circuit, engine)
         assert not any(part.kind == "block" for part in device.parts)
+
+
+@pytest.mark.parametrize(
+    ("channel", "extra", "more"),
+    [
+        ("n", "", {"cthj": 1e-3}),
+        ("p", "m=2", {"cthj": 2e-3}),
+        ("n", "", {}),
+    ],
+)
+def test_power_mos_that_heats_itself_is_fitted_with_its_temperatures(
+    channel: str, extra: str, more: dict[str, float], engine: Engine
+) -> None:
+    """The junction's temperature is the voltage of a node, its heat capacity a part from there to ground."""
+    sign = -1.0 if channel == "p" else 1.0
+    heat = {"rthjc": 1.5, "mu": -1.3, "texp0": 1.5, "tcvth": 5e-3, **more}
+    card = model("vdmos", 1, **{**POWER, **({"pchan": 1.0, "vto": -2.0} if channel == "p" else {}), **heat})
+    circuit = board(
+        *(f"VDD vdd 0 {sign * 20.0}", f"VG drive 0 {sign * 2.6}", "RG drive g 50", "RD vdd out 4", "CL out 0 100p"),
+        *("VA amb 0 35", "RT case amb 5", "CT case 0 0.01", f"M1 out g 0 tj case mx {extra}"),
+        models=(card,),
+        drive={"VG": 1.0},
+    )
+    *rest, transistor = circuit.elements
+    warm = replace(transistor, parameters=(*transistor.parameters, ("thermal", 1.0)))
+    network, devices = rebuilt(replace(circuit, elements=(*rest, warm)), engine)
+    assert disagreement(network, engine, np.concatenate([decades(1e-4, 1.0, 4), IN_BAND])) < 1e-6
+    told = {part.nodes: part.value for part in devices[0].parts if part.label == "c_th"}
+    # ngspice does not multiply it by m
+    assert told == pytest.approx({("tj", "0"): more["cthj"]} if more else {}, rel=1e-6, abs=0)
+    # one frozen at its temperature of rest has another gain at DC
+    cold = Network.from_parts((*network.parts, resistance("hold", "tj", "0", 1e-6)), output=network.port)
+    assert disagreement(cold, engine, np.array([1e-4])) > 1e-2
+    assert bool(devices[0].remarks) == bool(more)
 
 
 def test_power_mos_near_breakdown_is_measured_alone(engine: Engine) -> None:

@@ -254,6 +254,14 @@ def test_a_delay_inside_a_fitted_transistor_is_refused_at_its_model(tmp_path: Pa
         elaborate(read(path), NO_CHANGE)
 
 
+def test_self_heating_without_its_nodes_is_refused_at_the_card(tmp_path: Path) -> None:
+    path = tmp_path / "stage.cir"
+    path.write_text(stage("M1 d g 0 m thermal", "vdmos(vto=2 kp=3 rthjc=1)", 10, 3))
+    with pytest.raises(NetlistError, match=r"stage\.cir:6:1: self-heating needs nodes") as caught:
+        elaborate(read(path), NO_CHANGE)
+    assert "write M1 drain gate source junction case m thermal" in str(caught.value)
+
+
 def test_non_quasi_static_ac_is_refused_at_its_model(tmp_path: Path) -> None:
     path = tmp_path / "stage.cir"
     path.write_text(CASES["bsim4 saturation"].replace("rgatemod=3", "acnqsmod=1"))

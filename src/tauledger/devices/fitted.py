@@ -132,9 +132,10 @@ def _series(
     return tuple(conductance(name, outer[k], inner[k], g, labels[k]) for k, g in sorted(siemens.items()))
 
 
-def field_effect(circuit: Circuit, element: Element, bias: Bias) -> Device:
+def field_effect(circuit: Circuit, element: Element, bias: Bias, *, terminals: tuple[str, ...] | None = None) -> Device:
     """Give a fitted field-effect transistor: series resistances, channel and charges behind them, and the remainder.
 
+    terminals: their words where they are others than drain, gate, source and body.
     Drain and source are exchanged where the gate's current flows the other way.
     Raises ElementError where no matrices describe it.
     """
@@ -147,8 +148,9 @@ def field_effect(circuit: Circuit, element: Element, bias: Bias) -> Device:
     outer = [circuit.nodes[node] for node in element.nodes]
     inner = _inner(name, outer, outside.siemens, "dgs")
     d, g, s = inner[:3]
-    b = circuit.nodes[element.nodes[3]] if len(element.nodes) > 3 else None
-    ports, body = MOS_TERMINALS[: len(element.nodes)], None if b is None else "body"
+    ports = (terminals or MOS_TERMINALS)[: len(element.nodes)]
+    body = "body" if "body" in ports else None
+    b = circuit.nodes[element.nodes[3]] if body else None
     forward = quasi_static(name, ports, found, ("drain", "gate", "source", body))
     turned = any(part.label == "gm" and part.value < 0.0 for part in forward)
     elements = quasi_static(name, ports, found, ("source", "gate", "drain", body)) if turned else forward
@@ -176,7 +178,7 @@ def field_effect(circuit: Circuit, element: Element, bias: Bias) -> Device:
         region=_region(read, gm, g_o, turned=turned),
         # models that do not tell their current leave out what follows from it
         figures=tuple((symbol, number) for symbol, number in told if math.isfinite(number)),
-        terminals=tuple(Terminal(*one) for one in zip(MOS_TERMINALS, outer, inner, strict=False)),
+        terminals=tuple(Terminal(*one) for one in zip(ports, outer, inner, strict=True)),
         cell=cell_of(name, ends, gm, g_o, g_mb) if len({d, g, s}) == 3 else None,
         parts=(
             *_series(name, outer, inner, outside.siemens, LABELS_FET),

@@ -5,6 +5,10 @@ reading (`cds`), its conductance has none: it follows from the model. Reverse bi
 a measurement, gmin (whatever m is) plus the slope of I_S·(1 + 3·n·V_T/(e·v)), which counts where it is hot: I_S grows
 by 1e5 from 27 to 125 °C. Where the diode conducts or is near breakdown, the instance is measured alone and fitted. The
 shunt R_DS counts in ngspice's operating point, and (measured) not in its AC analysis.
+
+With self-heating (the flag `thermal`) the temperatures of junction and case are voltages of two nodes more, and AC
+takes part in it: the instance is then measured alone with all five, at the temperatures of its operating point. The
+heat capacity of the junction is a part of its own, from there to ground: above a few hertz it is a short.
 """
 
 from __future__ import annotations
@@ -13,7 +17,7 @@ import math
 
 from msgspec.structs import replace
 
-from tauledger.circuit import Circuit, Element, Model
+from tauledger.circuit import GROUND, Circuit, Element, Model
 from tauledger.devices.family import Device, Family, Refusal, Terminal, inner_node, names, readings_of
 from tauledger.devices.field_effect import Ends, cell_of, channel, figures, kept, mos_region, series
 from tauledger.devices.fitted import field_effect, isolated
@@ -25,12 +29,15 @@ from tauledger.devices.temperature import (
     polynomial_factor,
     temperature_rise,
 )
+from tauledger.quantity import engineering
 from tauledger.solution import Bias, Isolation, Observation
 
 READINGS = (
     *("id", "vgs", "vds", "von", "gm", "gds", "cgs", "cgd", "cds"),
     *("rd", "rs", "drainconductance", "sourceconductance"),
 )
+TERMINALS = ("drain", "gate", "source", "junction", "case")
+JUNCTION = 3
 GMIN = 1e-12
 # k/q in V/K as ngspice has it (CODATA 2014): with the value of 2019 a hot diode differs by 3e-6.
 BOLTZMANN_OVER_CHARGE = 1.38064852e-23 / 1.6021766208e-19
@@ -49,9 +56,17 @@ def _observe(element: Element) -> Observation | None:
 
 
 def _refuse(element: Element, model: Model | None) -> Refusal | None:
-    if model is not None and any(name in dict(element.parameters) for name in ("thermal",)):
-        return Refusal("thermal", "self-heating is no network of conductances and capacitances", "leave thermal out")
+    if model is not None and _heats_itself(element) and len(element.nodes) != len(TERMINALS):
+        return Refusal(
+            "thermal",
+            "self-heating needs nodes for the temperatures of junction and case",
+            f"write {element.name} drain gate source junction case {element.model} thermal",
+        )
     return None
+
+
+def _heats_itself(element: Element) -> bool:
+    return "thermal" in dict(element.parameters)
 
 
 def is_p_channel(model: Model) -> bool:
@@ -99,19 +114,42 @@ def diode_conductance(circuit: Circuit, element: Element, v: float) -> float:
 
 
 def _isolate(circuit: Circuit, element: Element, bias: Bias) -> Isolation | None:
-    """Measure the instance alone where its body diode conducts."""
-    return isolated(INNER)(circuit, element, bias) if diode_conducts(circuit, element, bias) else None
+    """Measure the instance alone where its body diode conducts or it heats itself."""
+    alone = _heats_itself(element) or diode_conducts(circuit, element, bias)
+    return isolated(INNER)(circuit, element, bias) if alone else None
 
 
 def _fitted(circuit: Circuit, element: Element, bias: Bias) -> Device:
     """Give the device as its terminals answer, under the type of its channel."""
     kind = "pmos" if is_p_channel(circuit.model(element.model)) else "nmos"
     models = tuple(replace(model, type=kind) if model.name == element.model else model for model in circuit.models)
-    return field_effect(replace(circuit, models=models), element, bias)
+    device = field_effect(replace(circuit, models=models), element, bias, terminals=TERMINALS)
+    if not _heats_itself(element) or circuit.model(element.model).parameter("cthj", 0.0) <= 0.0:
+        return device
+    return _with_heat(device, circuit.nodes[element.nodes[JUNCTION]])
+
+
+def _with_heat(device: Device, junction: str) -> Device:
+    """Bring the heat capacity at the junction's node out of the block, in J/K where a capacitance has F."""
+    *elements, rest = device.parts
+    at = rest.nodes.index(junction)
+    rows = [list(row) for row in rest.capacitances]
+    joule_per_kelvin, rows[at][at] = rows[at][at], 0.0
+    heat = capacitance(device.name, junction, GROUND, joule_per_kelvin, "c_th")
+    slow_hz = rest.conductances[at][at] / (2.0 * math.pi * joule_per_kelvin)
+    warm = (
+        f"{device.name} heats itself, and its temperature follows the signal up to some {engineering(slow_hz, 'Hz')}: "
+        f"the hand analysis of the upper edge refers to what is faster, name such a frequency with --midband"
+    )
+    return replace(
+        device,
+        parts=(*elements, heat, replace(rest, capacitances=tuple(map(tuple, rows)))),
+        remarks=(*device.remarks, warm),
+    )
 
 
 def _linearise(circuit: Circuit, element: Element, bias: Bias) -> Device:
-    if diode_conducts(circuit, element, bias):
+    if _heats_itself(element) or diode_conducts(circuit, element, bias):
         return _fitted(circuit, element, bias)
     model = circuit.model(element.model)
     read = readings_of(bias, element)
@@ -187,13 +225,14 @@ FLAGS = names("nchan pchan vdmosn vdmosp vdmos")
 VDMOS = Family(
     letter="M",
     words="power MOS transistor",
-    terminals=("drain", "gate", "source"),
+    terminals=TERMINALS,
     linearise=_linearise,
     observe=_observe,
     refuse=_refuse,
+    optional_terminals=2,
     model_types=("vdmos",),
     levels=(1,),
-    instance_parameters=names("m off icvds icvgs temp dtemp"),
+    instance_parameters=names("m off icvds icvgs temp dtemp thermal"),
     model_parameters=names(
         """
         vto vth0 kp phi lambda theta rd rs rg tnom kf af rq vq mtriode tcvth vtotc mu bex texp0 texp1 trd1 trd2 trg1

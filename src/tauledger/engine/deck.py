@@ -160,7 +160,7 @@ def _behind_name(element: Element, words: _Words) -> Iterable[str]:
         # ngspice takes the model of a capacitor or inductor before the value, that of a resistor behind it.
         yield from (*own, *of_model) if element.letter == "R" else (*of_model, *own)
     for name, value in given.items():
-        yield name if name in ("on", "off") else f"{name}={value}"
+        yield name if name in ("on", "off", "thermal") else f"{name}={value}"
 
 
 def _independent(element: Element, given: Mapping[str, str], amplitudes: Mapping[str, complex]) -> Iterable[str]:
