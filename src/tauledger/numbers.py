@@ -28,7 +28,6 @@ from tauledger.network.midband import MidBand, find_midband, frequency_range
 from tauledger.network.poles import PoleZeroMap, find_poles
 from tauledger.network.recompute import EdgeFrequencies, edge_frequencies, scaled
 from tauledger.network.solve import Complex, response
-from tauledger.network.transformers import drawn_out
 from tauledger.network.unity import is_ratio
 from tauledger.simulated import Simulated, simulate
 from tauledger.solution import Bias
@@ -121,7 +120,10 @@ def solve_network(network: Network, *, devices: tuple[Device, ...] = (), midband
         from tauledger.network.lines import require_held_ends
 
         require_held_ends(network)
-    network = drawn_out(network)
+    if any(part.kind == "mutual inductance" for part in network.parts):
+        from tauledger.network.transformers import drawn_out
+
+        network = drawn_out(network)
     midband = find_midband(network, at_hz=midband_hz)
     return Numbers(
         network=network,
