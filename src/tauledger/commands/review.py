@@ -28,9 +28,7 @@ _EXIT_CODES = (
 
 @click.command("review", short_help="Review one netlist, or several.", epilog=_EXIT_CODES)
 @click.argument("netlists", metavar="NETLIST...", nargs=-1, required=True)
-@click.option(
-    "--input", "drive", metavar="SRC", help="Drive source SRC with 1, or a pair VP,VN with ½ and -½; others not."
-)
+@click.option("--input", "drive", metavar="SRC", help="Drive source SRC with 1, or a pair VP,VN in opposite phase.")
 @click.option(
     "--output",
     "outputs",
@@ -53,7 +51,7 @@ _EXIT_CODES = (
     multiple=True,
     help="Set a .param, an element, model.parameter, X1.parameter or Q1.area.",
 )
-@click.option("--add", metavar="NODE=R,C", multiple=True, help="Add to ground: out=12p, out=10meg,12p; repeatable.")
+@click.option("--add", metavar="NODE=R,C", multiple=True, help="Add a probe to ground: out=12p, out=10meg,12p.")
 @click.option("--allow-include", "allow", metavar="DIR", multiple=True, help="Include files from DIR too; repeatable.")
 @click.option("--fold", metavar="INSTANCE", multiple=True, help="Show a subcircuit instance as one part; none: no one.")
 @questions
