@@ -42,7 +42,7 @@ class Worked:
 
     def t0(self) -> tuple[HandLoop | None, float]:
         assert self.loop is not None
-        worked = hand_loop(self.network, self.devices, self.loop.device, 0.0)
+        worked = hand_loop(self.bands, self.devices, self.loop.device)
         parts = [self.network.part(f"{self.loop.device}.gm")]
         return worked, complex(return_ratio(at_source(self.network, parts), on_axis(0.0))[0]).real
 

@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
-from cells import bipolar
+from cells import bands_of, bipolar
 from tauledger.circuit import Port
 from tauledger.devices.family import Device
 from tauledger.devices.parts import Part, capacitance, current_source, resistance
@@ -42,7 +42,7 @@ def worked(network: Network, devices: tuple[Device, ...], loop: FoundLoop) -> tu
     grid = loop_grid(poles / 1e4, poles)
     shape = loop_shape(lambda hz: return_ratio(opening, on_axis(hz)), grid, 0.0)
     assert shape.f_high_hz is not None
-    return open_loop(network, devices, loop, 0.0, shape.f_high_hz), shape.f_high_hz
+    return open_loop(bands_of(network), devices, loop, shape.f_high_hz), shape.f_high_hz
 
 
 BASE = FoundLoop("Q1", "b", "base", "Q1", ("c", "out"))
@@ -77,4 +77,4 @@ def test_the_load_of_the_cut_counts() -> None:
 
 def test_a_loop_without_a_wire_has_no_hand_table() -> None:
     network, devices = pair(c_in=50e-12, c_out=1e-12)
-    assert open_loop(network, devices, FoundLoop("E1", "", "", "E1", ()), 0.0, 1e6) is None
+    assert open_loop(bands_of(network), devices, FoundLoop("E1", "", "", "E1", ()), 1e6) is None

@@ -117,7 +117,7 @@ def _loop(found: Review, subject: Subject, place: Place, *, alone: bool) -> tupl
         unit=unit_of(numbers),
     )
     facts = _with_gains(facts, numbers, place, at_hz)
-    facts = _with_hand(facts, subject, place, at_hz)
+    facts = _with_hand(facts, subject, place)
     facts = _with_noise_gain(facts, place, at_hz)
     several = place.found and not alone
     if not several and (place.found or place.amplifier is not None or opening.kind == "wire"):
@@ -184,12 +184,12 @@ def _with_gains(facts: LoopFacts, numbers: Numbers, place: Place, at_hz: float) 
     )
 
 
-def _with_hand(facts: LoopFacts, subject: Subject, place: Place, at_hz: float) -> LoopFacts:
+def _with_hand(facts: LoopFacts, subject: Subject, place: Place) -> LoopFacts:
     """Add T₀ by hand where a transistor closes the loop and rules lead all the way round, and the ideal gain."""
     numbers, hand = subject.numbers, subject.explanation.hand
     if not place.device:
         return facts
-    worked = hand_loop(numbers.network, numbers.devices, place.device, at_hz)
+    worked = hand_loop(numbers.bands, numbers.devices, place.device)
     if worked is not None:
         rows = tuple(LoopStageFacts(stage.node, float(stage.hand), float(stage.exact)) for stage in worked.stages)
         facts = replace(facts, hand_return_ratio=float(worked.t0), hand_siemens=float(worked.siemens), hand_stages=rows)
@@ -200,7 +200,7 @@ def _with_hand(facts: LoopFacts, subject: Subject, place: Place, at_hz: float) -
         facts = replace(facts, hand_ideal_gain=float(ideal.value), hand_ideal_text=ideal.text)
     if facts.open_edge_hz is None:
         return facts
-    opened = open_loop(numbers.network, numbers.devices, place.loop, at_hz, facts.open_edge_hz)
+    opened = open_loop(numbers.bands, numbers.devices, place.loop, facts.open_edge_hz)
     if opened is None:
         return facts
     nodes = tuple(LoopNodeFacts(one.node, float(one.ohm), float(one.farad), float(one.seconds)) for one in opened.nodes)

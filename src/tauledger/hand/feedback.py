@@ -31,7 +31,7 @@ from tauledger.hand.estimate import SignalNode, StageRow
 from tauledger.hand.looking_in import looking_in
 from tauledger.hand.stages import stage_rows
 from tauledger.network.assemble import Network, assemble
-from tauledger.network.bands import classify
+from tauledger.network.bands import GAIN_TOLERANCE, Bands, merged_nodes, upper_network
 from tauledger.network.midband import MidBand
 from tauledger.network.return_ratio import CONTROLLED, VOLTAGE_KINDS, at_source, at_wire, return_ratio
 from tauledger.network.solve import on_axis, response
@@ -39,6 +39,7 @@ from tauledger.network.solve import on_axis, response
 LOOP_ABOVE = 1.0
 DIES = 0.1
 SOURCE = "loop'i"
+REACTIVE = ("capacitance", "transcapacitance", "inductance", "mutual inductance", "block")
 
 
 class FoundLoop(Struct, frozen=True):
@@ -107,11 +108,12 @@ def find_loop(
     return _at_lone_source(network, devices, at_hz)
 
 
-def hand_loop(network: Network, devices: tuple[Device, ...], owner: str, at_hz: float) -> HandLoop | None:
+def hand_loop(closed: Bands, devices: tuple[Device, ...], owner: str) -> HandLoop | None:
     """Work T₀ out at one transistor, or lone transconductance: from its output round to its control.
 
-    None where no hand rule gives all of it.
+    closed: the whole network, its capacitors classed at mid-band. None where no hand rule gives all of it.
     """
+    network, at_hz = closed.network, closed.midband.frequency_hz
     parts = [part for part in network.parts if part.owner == owner and part.kind in CONTROLLED]
     if not parts or parts[0].kind != "transconductance":
         return None
@@ -122,8 +124,8 @@ def hand_loop(network: Network, devices: tuple[Device, ...], owner: str, at_hz: 
     others = tuple(replace(one, cell=None) if one.name == owner else one for one in devices)
     try:
         opened = assemble((*dead.parts, source), port, {**dict.fromkeys(network.amplitudes, 0j), SOURCE: 1.0})
-        bands = classify(opened, reference_at(opened, at_hz))
-        if not bands.sound or bands.gain_setting:
+        bands = classed_as(closed, opened)
+        if bands is None:
             return None
         circuit = upper_circuit(bands, others)
         rows = stage_rows(bands, others)
@@ -151,12 +153,25 @@ def hand_loop(network: Network, devices: tuple[Device, ...], owner: str, at_hz: 
     return HandLoop(owner, first.value, tuple(stages), t0, -first.value * total)
 
 
-def reference_at(network: Network, at_hz: float) -> MidBand:
-    """Take a frequency that is mid-band of the closed loop for that of a part of it; no plateau is looked for.
+def classed_as(closed: Bands, opened: Network) -> Bands | None:
+    """Take every capacitor and inductor of an opened loop for what it is at mid-band of the closed one; others as open.
 
-    Raises NetworkError where the network has no unique solution there.
+    None where the gain of what is left is more than 2 % off, and where capacitors set the gain.
+    Raises NetworkError where the opened network has no unique solution at mid-band.
     """
-    return MidBand(at_hz, at_hz, at_hz, complex(response(network, np.array([at_hz]))[0]))
+    if closed.gain_setting:
+        return None
+    reactive = [part for part in opened.parts if part.kind in REACTIVE]
+    class_of = {part.name: closed.class_of.get(part.name, "open") for part in reactive}
+    merged = merged_nodes(opened, class_of)
+    upper = upper_network(opened, class_of, merged)
+    at_hz = closed.midband.frequency_hz
+    gain = complex(response(opened, np.array([at_hz]))[0])
+    merged_gain = complex(response(upper, np.zeros(1))[0])
+    if not abs(merged_gain.real - gain.real) <= GAIN_TOLERANCE * abs(gain):
+        return None
+    midband = MidBand(at_hz, at_hz, at_hz, gain)
+    return Bands(opened, midband, class_of, {}, merged, upper, opened, sound=True)
 
 
 def _inner_divider(devices: tuple[Device, ...], network: Network, owner: str) -> float | None:

@@ -19,9 +19,9 @@ from tauledger.devices.family import Device, Terminal, Transconductor
 from tauledger.devices.parts import Part, capacitance, conductance, voltage_source
 from tauledger.errors import InputError, NetworkError
 from tauledger.hand.budget import signal_nodes
-from tauledger.hand.feedback import FoundLoop, reference_at
-from tauledger.network.assemble import Network, assemble
-from tauledger.network.bands import classify
+from tauledger.hand.feedback import FoundLoop, classed_as
+from tauledger.network.assemble import assemble
+from tauledger.network.bands import Bands
 from tauledger.network.return_ratio import SERIES, at_wire
 from tauledger.network.solve import on_axis, response
 
@@ -47,17 +47,16 @@ class OpenLoop(Struct, frozen=True):
     nodes: tuple[OpenNode, ...]
 
 
-def open_loop(
-    network: Network, devices: tuple[Device, ...], loop: FoundLoop, at_hz: float, edge_hz: float
-) -> OpenLoop | None:
+def open_loop(closed: Bands, devices: tuple[Device, ...], loop: FoundLoop, edge_hz: float) -> OpenLoop | None:
     """Work the time constants of the opened loop out.
 
-    at_hz: mid-band. edge_hz: about where the edge of T is; the input capacitance is taken somewhat below. None for a loop that
-    is not cut at a wire, and where no hand table can be given.
+    closed: the whole network, its capacitors classed at mid-band. edge_hz: about where the edge of T is; the input
+    capacitance is taken somewhat below. None for a loop that is not cut at a wire, and where hand rules do not reach.
     Raises NetworkError where the network has no unique solution.
     """
     if not loop.node:
         return None
+    network, at_hz = closed.network, closed.midband.frequency_hz
     cut = at_wire(network, loop.owner, loop.node)
     parts = tuple(part for part in cut.network.parts if part.owner != SERIES)
     silent = dict.fromkeys(network.amplitudes, 0j)
@@ -68,8 +67,8 @@ def open_loop(
     moved = tuple(_moved(one, loop.node, cut.far) if one.name == loop.owner else one for one in devices)
     try:
         opened = assemble((*parts, *load, driven), Port(loop.node), {**silent, DRIVE: 1.0})
-        bands = classify(opened, reference_at(opened, at_hz))
-        if not bands.sound or bands.gain_setting:
+        bands = classed_as(closed, opened)
+        if bands is None:
             return None
         rows = [row for row in signal_nodes(bands, moved) if row.in_path and not row.second]
     except (NetworkError, InputError):
