@@ -26,7 +26,7 @@ from tauledger.report.document import document
 from tauledger.report.html import to_html
 from tauledger.report.json import to_json
 from tauledger.report.markdown import to_markdown
-from tauledger.report.sentences import answers
+from tauledger.report.questions import answers
 from tauledger.report.tables.upper import budget
 from tauledger.report.terminal import render
 

@@ -10,7 +10,7 @@ from msgspec.structs import replace
 from report.literal import ECHO_PREAMP
 from tauledger.record import CapacitanceTerm, ResistanceTerm, Review, SourceLine, WorkingLine
 from tauledger.report.drawing.stage import drawn_stages
-from tauledger.report.sentences import answers
+from tauledger.report.questions import answers
 from tauledger.report.tables import setting, upper
 from tauledger.report.wording import coefficients
 

@@ -8,7 +8,8 @@ from report.literal import ECHO_PREAMP
 from tauledger.record import Help, PoleFacts, Review
 from tauledger.report.blocks import Picture
 from tauledger.report.document import document
-from tauledger.report.sentences import answers, headline
+from tauledger.report.headline import headline
+from tauledger.report.questions import answers
 from tauledger.report.tables.helps import what_would_help
 from tauledger.report.wording import part_titles
 

@@ -9,16 +9,10 @@ from msgspec import Struct
 
 from tauledger.record import Review
 from tauledger.report.blocks import Section
+from tauledger.report.headline import KeyFigure, headline, key_figures
+from tauledger.report.questions import Answer, answers
 from tauledger.report.sections import circuit, evidence, feedback, ports, response, upper
-from tauledger.report.sentences import (
-    Answer,
-    KeyFigure,
-    answers,
-    believed,
-    drive_sentence,
-    headline,
-    key_figures,
-)
+from tauledger.report.sentences import believed, drive_sentence
 
 
 class Document(Struct, frozen=True):

@@ -10,8 +10,8 @@ from urllib.parse import quote
 from msgspec import Struct
 
 from tauledger.record import Review
+from tauledger.report.headline import headline, key_figures
 from tauledger.report.html import style, template
-from tauledger.report.sentences import headline, key_figures
 
 INDEX = "index.html"
 

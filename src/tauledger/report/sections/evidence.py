@@ -4,12 +4,7 @@ from __future__ import annotations
 
 from tauledger.record import Review
 from tauledger.report.blocks import Block, Item, Items, Prose, Section
-from tauledger.report.sentences import (
-    believed,
-    note_text,
-    plain,
-    sentence,
-)
+from tauledger.report.sentences import believed, note_text, plain, sentence
 from tauledger.report.tables import outside, setting, way
 
 

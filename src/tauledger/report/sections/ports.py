@@ -4,9 +4,7 @@ from __future__ import annotations
 
 from tauledger.record import Review
 from tauledger.report.blocks import Block, Folded, Picture, Prose, Section
-from tauledger.report.sentences import (
-    sentence,
-)
+from tauledger.report.sentences import sentence
 from tauledger.report.tables import large_signal, setting
 from tauledger.report.tables.working import Lines
 

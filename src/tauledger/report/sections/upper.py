@@ -7,9 +7,7 @@ from collections.abc import Iterable
 from tauledger.record import CauseFacts, Review
 from tauledger.report.blocks import Block, Folded, Item, Items, Picture, Prose, Section
 from tauledger.report.charts.bars import bars_text
-from tauledger.report.sentences import (
-    cause_text,
-)
+from tauledger.report.sentences import cause_text
 from tauledger.report.tables import helps, upper, way
 from tauledger.report.tables.working import working
 from tauledger.report.wording import EDGE, fraction, move, withheld
