@@ -165,3 +165,16 @@ def test_a_flag_and_an_area_are_read_alike_in_every_order(words: str, tmp_path: 
     assert "jn off area=2.0" in flat
     path.write_text(flat)
     assert flat_netlist(elaborate(read(path), purpose="reading")) == flat
+
+
+def test_a_line_does_not_count_the_m_of_the_instances_around_it_nor_does_it_in_ngspice(tmp_path: Path) -> None:
+    path = tmp_path / "board.cir"
+    board = (
+        "lead\nV1 a 0 AC 1\nX1 a b lead{}\n.subckt lead p q\nT1 p 0 q 0 z0=75 td=5n\n.ends\nR1 b 0 50\n.print ac v(b)\n"
+    )
+    path.write_text(board.format(" m=2"))
+    circuit = elaborate(read(path))
+    assert _says(circuit) == ["X1.T1 does not count the m = 2 of the instances around it: ngspice has none for T"]
+    theirs = answers(tmp_path, path)[1]["b"]
+    path.write_text(flat_netlist(circuit))
+    assert answers(tmp_path, path)[1]["b"] == pytest.approx(theirs, rel=1e-6)

@@ -249,8 +249,10 @@ def _multiplied(
 ) -> ElementCard:
     """Work in m: of the card and of the instances around, where ngspice counts it for this letter."""
     if letter in WITHOUT_M:
-        if around.m != 1.0 and letter == "B" and part.quantity == "i":
-            says = f"{name} does not count the m = {around.m:g} of the instances around it: ngspice has none for B"
+        if around.m != 1.0 and (letter in "TO" or (letter == "B" and part.quantity == "i")):
+            says = (
+                f"{name} does not count the m = {around.m:g} of the instances around it: ngspice has none for {letter}"
+            )
             around.scope.notes.append(ReadingNote(site.where, says))
         return part if part.m == 1.0 else replace(part, parameters=(*part.parameters, ("m", part.m)))
     m = _product(around, part.m, name, site)
