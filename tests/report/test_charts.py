@@ -170,3 +170,13 @@ def test_a_small_screen_gets_every_number_in_letters_of_the_same_size(draw: Call
     values = [text for text in texts(large) if re.search(r"\d (?:kHz|ns|%)", text)]
     assert len(values) >= 4
     assert all(value in told for value in values)
+
+
+def test_a_phase_that_runs_on_without_end_is_shown_about_the_band_with_few_ticks() -> None:
+    """The phase of a line falls with frequency itself: a decade has ten times the turns of the one before."""
+    curves = ECHO_PREAMP.curves
+    assert curves is not None
+    falling = tuple(-180.0 - hz / 10.0 for hz in curves.frequency_hz)
+    line = replace(ECHO_PREAMP, curves=replace(curves, simulated_deg=falling, exact_deg=falling))
+    drawn = bode_chart(line)
+    assert drawn.count("<text") < bode_chart(ECHO_PREAMP).count("<text") + 10

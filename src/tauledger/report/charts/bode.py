@@ -18,6 +18,8 @@ if TYPE_CHECKING:
     from matplotlib.figure import Figure
 
 BELOW_DB = 70.0
+# The phase of a line runs on without end; this much of it is about the band.
+MOST_DEG = 900.0
 SOLID: Mapping[str, Any] = {"linewidth": 1.6}
 LOOKS: Mapping[str, Mapping[str, Any]] = {"hand": {"linestyle": (0, (5, 2)), "linewidth": 1.5}}
 # So much is shown below 0 dB where the report is about unity gain.
@@ -47,6 +49,8 @@ def bode_chart(review: Review, *, narrow: bool = False) -> str:
         upper.set_ylim(bottom, top)
         upper.set_ylabel(f"magnitude in {DECIBEL.get(review.midband.unit, 'dB')}")
         lower.set_ylabel("phase in degrees")
+        low, high = lower.get_ylim()
+        lower.set_ylim(max(low, midband_deg(review) - MOST_DEG), min(high, midband_deg(review) + MOST_DEG))
         degree_ticks(lower)
         lower.set_xlabel("frequency")
         hertz_ticks(lower, most=4 if narrow else 8)
@@ -116,7 +120,8 @@ def degree_ticks(axes: Axes) -> None:
     from matplotlib.ticker import MultipleLocator
 
     low, high = axes.get_ylim()
-    step = next((step for step in (15, 30, 45, 90, 180) if (high - low) / step <= 6), 360)
+    turns = 360 * 2 ** max(0, math.ceil(math.log2((high - low) / (6.0 * 360.0))))
+    step = next((step for step in (15, 30, 45, 90, 180) if (high - low) / step <= 6), turns)
     axes.yaxis.set_major_locator(MultipleLocator(step))
 
 
