@@ -47,6 +47,18 @@ def test_factors_are_told_where_they_are_known_and_not_below() -> None:
     assert {texts[0] for texts in found.texts} >= set(known)
 
 
+def test_a_phase_of_too_many_turns_is_not_told() -> None:
+    """Between two frequencies of the sweep a line may turn more than half a circle; nobody could count it."""
+    curves = WITH_FACTORS.curves
+    assert curves is not None
+    falling = tuple(-180.0 - hz / 100.0 for hz in curves.frequency_hz)
+    found = cursor(replace(WITH_FACTORS, curves=replace(curves, simulated_deg=falling)))
+    assert found is not None
+    phases = [texts[2 + 2 * found.curves.index("simulated")] for texts in found.texts]
+    assert phases[0] != "–"
+    assert phases[-1] == "–"
+
+
 def test_it_begins_next_to_the_upper_edge() -> None:
     found = cursor(WITH_FACTORS)
     assert found is not None

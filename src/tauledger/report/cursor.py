@@ -12,7 +12,7 @@ import math
 from msgspec import Struct
 
 from tauledger.record import MillerCurve, Review
-from tauledger.report.shown import Shown, edge_places, shown
+from tauledger.report.shown import MOST_DEG, Shown, edge_places, midband_deg, shown
 from tauledger.report.wording import NO_NUMBER, number, part_titles
 
 EVERY = 3
@@ -69,7 +69,7 @@ def cursor(review: Review) -> Cursor | None:
             for curve in curves
         ),
         places=tuple((math.log(seen.frequency_hz[k]) - log[0]) / (log[1] - log[0]) for k in at),
-        texts=tuple(_texts(seen, k, curves, known) for k in at),
+        texts=tuple(_texts(seen, k, curves, known, midband_deg(review)) for k in at),
     )
 
 
@@ -86,10 +86,15 @@ def _seen_from(curve: MillerCurve, rows: dict[str, str]) -> str:
     return rows.get(curve.row, curve.row) if curve.node == curve.row else curve.node
 
 
-def _texts(seen: Shown, k: int, curves: tuple[MillerCurve, ...], known: tuple[float, ...]) -> tuple[str, ...]:
+def _texts(
+    seen: Shown, k: int, curves: tuple[MillerCurve, ...], known: tuple[float, ...], midband: float
+) -> tuple[str, ...]:
+    """Write what is known there; the turns of a phase far from mid-band are not counted between two frequencies."""
     texts = [number(seen.frequency_hz[k], "Hz")]
     for curve in seen.curves:
-        texts += [_level(curve.magnitude_db[k]), f"{_signed(curve.phase_deg[k], 1)}°"]
+        beyond = curve.phase_deg[k] - midband
+        phase = f"{_signed(curve.phase_deg[k], 1)}°" if abs(beyond) <= MOST_DEG else NO_NUMBER
+        texts += [_level(curve.magnitude_db[k]), phase]
     there = known.index(seen.frequency_hz[k]) if seen.frequency_hz[k] in known else None
     for row in curves:
         if there is None:

@@ -12,6 +12,8 @@ BEYOND = 300.0
 FAR_BELOW = 1e4
 # So much beyond f_u where the report is about unity gain.
 BEYOND_UNITY = 10.0
+# The phase of a line runs on without end; this much of it, from mid-band, is about the band.
+MOST_DEG = 900.0
 
 
 class ShownCurve(Struct, frozen=True):

@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Any
 from tauledger.record import Review
 from tauledger.report.charts.style import blank, light, styled, to_svg
 from tauledger.report.curve import place_text
-from tauledger.report.shown import Shown, edge_places, midband_deg, nearest, shown, turns_deg, unity_hz
+from tauledger.report.shown import MOST_DEG, Shown, edge_places, midband_deg, nearest, shown, turns_deg, unity_hz
 from tauledger.report.tables.roots import Root, near_roots
 from tauledger.report.wording import number
 
@@ -18,8 +18,6 @@ if TYPE_CHECKING:
     from matplotlib.figure import Figure
 
 BELOW_DB = 70.0
-# The phase of a line runs on without end; this much of it is about the band.
-MOST_DEG = 900.0
 SOLID: Mapping[str, Any] = {"linewidth": 1.6}
 LOOKS: Mapping[str, Mapping[str, Any]] = {"hand": {"linestyle": (0, (5, 2)), "linewidth": 1.5}}
 # So much is shown below 0 dB where the report is about unity gain.
