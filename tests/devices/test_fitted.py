@@ -14,6 +14,7 @@ from tauledger.devices.family import Device
 from tauledger.engine.client import Engine
 from tauledger.errors import ExitCode, NetlistError
 from tauledger.netlist import elaborate, read
+from tauledger.network.assemble import Network
 from tauledger.network.solve import response
 from tauledger.numbers import Numbers, solve
 
@@ -247,11 +248,21 @@ def test_polarity_makes_no_difference_to_the_region(drive: float, region: str, t
         assert device_of(solved(text, tmp_path, engine)).region == region
 
 
-def test_a_delay_inside_a_fitted_transistor_is_refused_at_its_model(tmp_path: Path) -> None:
-    path = tmp_path / "stage.cir"
-    path.write_text(CASES["quasi-saturation active"].replace("rco=100", "rco=100 ptf=30"))
-    with pytest.raises(NetlistError, match=r"stage\.cir:\d+:\d+: .*PTF"):
-        elaborate(read(path), NO_CHANGE)
+@pytest.mark.parametrize("base", ["rbm=20 irb=1m", "", "no r_b"])
+@pytest.mark.parametrize("case", ["quasi-saturation active", "quasi-saturation saturated pnp"])
+def test_excess_phase_beside_quasi_saturation_is_rebuilt(case: str, base: str, tmp_path: Path, engine: Engine) -> None:
+    text = CASES[case].replace("rco=100", "rco=100 ptf=40").replace("rbm=20 irb=1m", base)
+    text = text.replace("rb=100 no r_b", "").replace(".ac dec 10 10 100meg", ".ac dec 10 10 100g")
+    numbers = solved(text, tmp_path, engine)
+    assert numbers.agreement is not None
+    assert numbers.agreement.max_relative_error <= AGREES
+    device = device_of(numbers)
+    assert "excess phase delays the collector current of Q1" in device.remarks[0]
+    # without the delay the response is another
+    parts = [part for part in numbers.network.parts if part.label not in ("delay", "delay_0")]
+    hurried = Network.from_parts(parts, output=numbers.network.port)
+    at = np.array([1e9])
+    assert abs(response(hurried, at)[0] / response(numbers.network, at)[0] - 1.0) > 1e-3
 
 
 def test_self_heating_without_its_nodes_is_refused_at_the_card(tmp_path: Path) -> None:

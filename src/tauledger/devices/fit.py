@@ -88,10 +88,15 @@ def fit(samples: Samples) -> Fit:
         if found.error <= ACCEPTED:
             return found
         worst = min(worst, found.error)
-    raise ElementError(
-        samples.element,
-        f"the small-signal behaviour of {samples.element} could not be fitted within {ACCEPTED:.0e} (error "
-        f"{worst:.1e}): no conductances and capacitances describe what ngspice says of it",
+    raise refused(samples.element, worst)
+
+
+def refused(element: str, worst: float) -> ElementError:
+    """Make the error for an instance that no fit describes; worst: the smallest error that was reached."""
+    return ElementError(
+        element,
+        f"the small-signal behaviour of {element} could not be fitted within {ACCEPTED:.0e} (error {worst:.1e}): no "
+        "conductances and capacitances describe what ngspice says of it",
         "leave out what in its model is a delay or depends on the frequency, or use a simpler level",
     )
 
@@ -140,9 +145,9 @@ def _fit(frequency_hz: Real, y: Complex, z: Complex) -> Fit:
     # one equation per frequency and driven terminal, (n_freq, n_terminals, n + k)
     x = np.concatenate([terminals, z], axis=1).transpose(0, 2, 1)
     equations = np.concatenate([x, 1j * omega[:, None, None] * x], axis=2)
-    rows = [_least_squares(equations, y[:, i, :]) for i in range(n)]
+    rows = [least_squares(equations, y[:, i, :]) for i in range(n)]
     if k:
-        weighted, scale = _scaled(equations, 1.0 / (1.0 + frequency_hz / HIGH_HZ))
+        weighted, scale = scaled(equations, 1.0 / (1.0 + frequency_hz / HIGH_HZ))
         _, _, vt = np.linalg.svd(weighted, full_matrices=False)
         rows += list(vt[-k:] / scale)
     both = np.array(rows)
@@ -158,16 +163,16 @@ def _fit(frequency_hz: Real, y: Complex, z: Complex) -> Fit:
     return Fit(n, g, c, 0.0)
 
 
-def _least_squares(equations: Complex, current: Complex) -> Real:
+def least_squares(equations: Complex, current: Complex) -> Real:
     """Give (g, c) of one terminal's row; every frequency counts alike, relative to its own largest current."""
     weight = 1.0 / np.abs(current).max(axis=1).clip(min=1e-30)
-    weighted, scale = _scaled(equations, weight)
+    weighted, scale = scaled(equations, weight)
     right = (current * weight[:, None]).reshape(-1)
     found = np.linalg.lstsq(weighted, np.concatenate([right.real, right.imag]), rcond=1e-15)[0]
     return np.asarray(found / scale, dtype=float)
 
 
-def _scaled(equations: Complex, weight: Real) -> tuple[Real, Real]:
+def scaled(equations: Complex, weight: Real) -> tuple[Real, Real]:
     """Give the equations weighted, real parts above imaginary ones, with columns of norm 1, and those norms."""
     flat = (equations * weight[:, None, None]).reshape(-1, equations.shape[2])
     real = np.concatenate([flat.real, flat.imag])

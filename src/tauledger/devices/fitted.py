@@ -10,6 +10,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable, Mapping, Sequence
+from typing import TYPE_CHECKING
 
 from tauledger.circuit import Circuit, Element, Model
 from tauledger.devices.bsim import BSIM3_LEVELS, BSIM4_LEVELS
@@ -18,7 +19,7 @@ from tauledger.devices.bsim4_parameters import MODEL_PARAMETERS as BSIM4_PARAMET
 from tauledger.devices.family import Device, Family, Refusal, Terminal, Transconductor, inner_node, names, readings_of
 from tauledger.devices.field_effect import Ends, cell_of, figures, is_p, mos_region
 from tauledger.devices.gummel_poon import MODEL_PARAMETERS as GUMMEL_POON_PARAMETERS
-from tauledger.devices.gummel_poon import region_of
+from tauledger.devices.gummel_poon import delayed_remark, excess_delay, region_of
 from tauledger.devices.jfet import DISPERSION, LEVEL_2
 from tauledger.devices.model_names import (
     BSIM1,
@@ -34,7 +35,13 @@ from tauledger.devices.model_names import (
 )
 from tauledger.devices.parts import Part, conductance
 from tauledger.devices.temperature import device_temperature
-from tauledger.solution import Bias, Isolation, Observation
+from tauledger.solution import Bias, Isolation, Observation, Samples
+
+if TYPE_CHECKING:
+    import numpy as np
+    from numpy.typing import NDArray
+
+    from tauledger.devices.delayed_fit import Delay
 
 # Suffixes of the engine's inner nodes; those that an instance does not have are left out.
 GUMMEL_POON_INNER = ("collector", "collCX", "base", "emitter")
@@ -79,7 +86,16 @@ def bipolar(circuit: Circuit, element: Element, bias: Bias) -> Device:
     from tauledger.devices.reduced import hybrid_pi, placed, with_remainder
 
     outside, name = series_outside(bias.samples[element.name], BEHIND_BIPOLAR), element.name
-    found = fit(outside.behind)
+    model = circuit.model(element.model)
+    delay = _delay(outside.behind, excess_delay(model), readings_of(bias, element))
+    if delay is None:
+        found = fit(outside.behind)
+        late: tuple[Part, ...] = ()
+    else:
+        from tauledger.devices.delayed_fit import delay_parts, fit_delayed
+
+        found = fit_delayed(outside.behind, delay)
+        late = delay_parts(name, found, delay)
     outer = [circuit.nodes[node] for node in element.nodes]
     inner = _inner(name, outer, outside.siemens, "cbe")
     c, b, e = inner[:3]
@@ -87,7 +103,6 @@ def bipolar(circuit: Circuit, element: Element, bias: Bias) -> Device:
     ports = BIPOLAR_TERMINALS[: len(element.nodes)]
     elements = hybrid_pi(name, ports, found, ("collector", "base", "emitter", None if s is None else "substrate"))
     value = {part.label: part.value for part in elements}
-    model = circuit.model(element.model)
     sign = 1.0 if model.type == "npn" else -1.0
     v_be, v_bc = (sign * _volts(bias, element, 1, k) for k in (2, 0))
     ampere = readings_of(bias, element)["ic"]
@@ -116,9 +131,30 @@ def bipolar(circuit: Circuit, element: Element, bias: Bias) -> Device:
         cell=cell,
         parts=(
             *_series(name, outer, inner, outside.siemens, LABELS_BIPOLAR),
+            *late,
             *placed(with_remainder(name, ports, found, elements), dict(zip(ports, inner, strict=True))),
         ),
+        remarks=(delayed_remark(name, delay.delay_s),) if delay is not None else (),
     )
+
+
+def _delay(samples: Samples, delay_s: float, read: Mapping[str, float]) -> Delay | None:
+    """Give the transport current that excess phase delays, and v(b'e') that controls it; None without delay."""
+    if delay_s == 0.0:
+        return None
+    from tauledger.devices.delayed_fit import Delay
+
+    base, emitter = (_recorded(samples, name, place) for name, place in (("base", 1), ("emitter", 2)))
+    return Delay(read["gm"] + read["go"], delay_s, base - emitter)
+
+
+def _recorded(samples: Samples, name: str, place: int) -> NDArray[np.complex128]:
+    """Give the voltage of an inner node, that of its terminal where there is none, V/V (n_freq, n_terminals)."""
+    import numpy as np
+
+    if name in samples.inner:
+        return samples.inner_gain[:, samples.inner.index(name), :]
+    return np.broadcast_to(np.eye(len(samples.terminals), dtype=complex)[place], samples.admittance.shape[:2])
 
 
 def _inner(name: str, outer: Sequence[str], siemens: Mapping[int, float], letters: str) -> tuple[str, ...]:
@@ -220,16 +256,6 @@ def _never(_element: Element, _model: Model | None) -> Refusal | None:
     return None
 
 
-def _no_delay(_element: Element, model: Model | None) -> Refusal | None:
-    if model is not None and model.parameter("ptf", 0.0) != 0.0:
-        return Refusal(
-            "ptf",
-            "excess phase (PTF) together with quasi-saturation (RCO) cannot be rebuilt: a delay is in no matrix",
-            "leave one of the two out",
-        )
-    return None
-
-
 def _quasi_static_only(element: Element, model: Model | None) -> Refusal | None:
     given = {**dict(model.parameters if model is not None else ()), **dict(element.parameters)}
     if given.get("acnqsmod", 0.0) != 0.0:
@@ -275,14 +301,19 @@ GATE_INSTANCE = names("area m l w off icvds icvgs temp dtemp td ts")
 
 
 def _bipolar(
-    levels: tuple[int, ...], inner: tuple[str, ...], parameters: frozenset[str], words: str, refuse: Refuse
+    levels: tuple[int, ...],
+    inner: tuple[str, ...],
+    parameters: frozenset[str],
+    words: str,
+    refuse: Refuse,
+    read: tuple[str, ...] = ("ic",),
 ) -> Family:
     return Family(
         letter="Q",
         words=words,
         terminals=BIPOLAR_TERMINALS,
         linearise=bipolar,
-        observe=_reading("ic"),
+        observe=_reading(*read),
         refuse=refuse,
         optional_terminals=1,
         model_types=("npn", "pnp"),
@@ -317,7 +348,9 @@ def _fet(
     )
 
 
-QUASI_SATURATION = _bipolar((1,), GUMMEL_POON_INNER, GUMMEL_POON_PARAMETERS, "bipolar transistor", _no_delay)
+QUASI_SATURATION = _bipolar(
+    (1,), GUMMEL_POON_INNER, GUMMEL_POON_PARAMETERS, "bipolar transistor", _never, ("ic", "gm", "go")
+)
 VBIC_BIPOLAR = _bipolar((4, 9), VBIC_INNER, VBIC, "bipolar transistor", _never)
 HICUM_BIPOLAR = _bipolar((8,), HICUM_INNER, HICUM, "bipolar transistor", _without_self_heating)
 MESFETS = (

@@ -93,6 +93,14 @@ def excess_delay(model: Model) -> float:
     return math.radians(model.parameter("ptf", 0.0)) * model.parameter("tf", 0.0)
 
 
+def delayed_remark(name: str, delay_s: float) -> str:
+    """Word what a reader must know of a delayed collector current."""
+    return (
+        f"excess phase delays the collector current of {name} by {engineering(delay_s, 's')}: the response, the band "
+        "edges and their shares count it exactly, the table of poles as an all-pass, the time constants not at all"
+    )
+
+
 def _transconductances(
     name: str, out: tuple[str, str], control: tuple[str, str], gm: float, g_o: float, delay_s: float
 ) -> tuple[Part, ...]:
@@ -161,10 +169,6 @@ def _linearise(circuit: Circuit, element: Element, bias: Bias) -> Device:
         capacitance(name, substrate_inner, s, read["cqsub"], "c_sub"),
         transcapacitance(name, (bi, ei), (bi, ci), read["cexbc"], "cexbc"),
     )
-    late = (
-        f"excess phase delays the collector current of {name} by {engineering(delay_s, 's')}: the response, the band "
-        "edges and their shares count it exactly, the table of poles as an all-pass, the time constants not at all"
-    )
     kept = tuple(part for part in parts if part.value != 0.0 and not _shorted(part))
     v_ce = float(bias.voltages[element.nodes[0]] - bias.voltages[element.nodes[2]])
     terminals = [Terminal("collector", c, ci), Terminal("base", b, bi), Terminal("emitter", e, ei)]
@@ -178,7 +182,7 @@ def _linearise(circuit: Circuit, element: Element, bias: Bias) -> Device:
         terminals=tuple(terminals),
         cell=Transconductor(name, bi, ei, ci, gm, _inverse(g_pi), _inverse(g_o)) if gm else None,
         parts=kept,
-        remarks=(late,) if delay_s else (),
+        remarks=(delayed_remark(name, delay_s),) if delay_s else (),
         without_charge=not any(part.kind in ("capacitance", "transcapacitance") for part in kept),
     )
 
