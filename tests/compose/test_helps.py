@@ -6,8 +6,12 @@ from pathlib import Path
 
 import pytest
 
-from tauledger.circuit import Change
+from tauledger.circuit import Change, Port
+from tauledger.compose.helps import helps
+from tauledger.devices.parts import inductance, mutual_inductance, resistance, voltage_source
 from tauledger.engine.client import Engine
+from tauledger.network.assemble import Network
+from tauledger.numbers import solve_network
 from tauledger.pipeline import review
 from tauledger.record import Help, Review
 from tauledger.report.terminal import render
@@ -63,3 +67,22 @@ def test_the_terminal_shows_it_on_request_and_says_what_was_recomputed(preamp: R
     assert table.count("recomputed") == 3
     assert "operating point held" in table
     assert max(map(len, table.splitlines())) <= 80
+
+
+def test_the_inductances_of_a_transformer_are_free_to_choose() -> None:
+    network = Network.from_parts(
+        [
+            voltage_source("VS", "in", "0", 1.0),
+            resistance("RS", "in", "p", 150.0),
+            inductance("L1", "p", "0", 20e-3),
+            inductance("L2", "out", "0", 80e-3),
+            mutual_inductance("K1", "L1", "L2", ("p", "0", "out", "0"), 0.999 * 40e-3),
+            resistance("RL", "out", "0", 600.0),
+        ],
+        output=Port("out"),
+    )
+    found = {one.name: one for one in helps(solve_network(network))}
+    assert found["L1.l_m"].free
+    # f_L = R/(2π·L_m), f_H = R/(2π·L_leak): 10 % less of either raises its edge by 10 %
+    assert found["L1.l_m"].f_low == pytest.approx(0.1, rel=0.01)
+    assert found["K1.l_leak"].f_high == pytest.approx(0.1, rel=0.01)

@@ -45,8 +45,8 @@ def helps(numbers: Numbers) -> tuple[Help, ...]:
 
 
 def is_card(part: Part) -> bool:
-    """Whether a part is a card of the netlist by itself, a line's delay included, and not inside a device."""
-    return part.name == part.owner or part.kind == "line"
+    """Whether a part is a card of the netlist and not inside a device; a line's delay and a transformer's L are."""
+    return part.name == part.owner or part.kind in ("line", "inductance")
 
 
 def is_element(part: Part) -> bool:

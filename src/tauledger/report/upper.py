@@ -66,6 +66,7 @@ def upper_budget(review: Review, *, verbose: bool = False) -> Section:
         blocks.append(Prose(_sums(review.budget.upper, halves=halves, delay=delay), lead="  "))
     if verbose:
         blocks.extend(workings(review, [node for node in shown if node.working]).blocks)
+        blocks.extend(_coil_working(row, review) for row in coils)
     return Section(tuple(blocks), major=True)
 
 
@@ -147,6 +148,11 @@ def _coil_row(row: InductorFacts, review: Review) -> Row:
             "",
         )
     )
+
+
+def _coil_working(row: InductorFacts, review: Review) -> Prose:
+    quotient = f"L/R {number(row.time_constant_s, 's')} by hand, {number(row.time_constant_exact_s, 's')} exact"
+    return Prose(retitled(f"{row.title}: {row.text}; {quotient}", review.parts), lead="  ", hang=2)
 
 
 def _mark(node: NodeRow) -> str:
