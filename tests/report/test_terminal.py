@@ -20,11 +20,13 @@ from tauledger.record import (
     EdgePair,
     MidbandFacts,
     NoteFacts,
+    Owner,
     Review,
     Working,
 )
 from tauledger.report.layout import SYMBOLS
 from tauledger.report.terminal import render
+from tauledger.report.wording import owners_text
 
 PAGE = Path(__file__).with_name("terminal.txt")
 
@@ -262,3 +264,8 @@ ELSEWHERE = {"\u00a0", "\u200b", "\ufeff", "␡", "�", "○"}
 def test_every_symbol_that_the_program_writes_has_a_spelling_in_ascii() -> None:
     found = {c for module in (Path(tauledger.__file__).parent).rglob("*.py") for c in written(module)}
     assert found - ELSEWHERE <= set(SYMBOLS), sorted(found - ELSEWHERE - set(SYMBOLS))
+
+
+def test_the_owner_of_a_delay_s_pole_is_named_as_one_would_say_it() -> None:
+    owners = (Owner("X1.Q1.gm.delay", 0.9), Owner("Q1.c_mu", 0.2))
+    assert owners_text(owners, {"Q1.c_mu": "C_μ of Q1"}) == "delay of X1.Q1 90 %, C_μ of Q1 20 %"

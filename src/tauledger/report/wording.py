@@ -140,7 +140,14 @@ def retitled(text: str, parts: Iterable[PartRow]) -> str:
 def owners_text(owners: Iterable[Owner], titles: Mapping[str, str], most: int = 2) -> str:
     """Say what a pole depends on: "C_μ of Q1 64 %, CL 29 %"; nothing below 10 %."""
     large = sorted((owner for owner in owners if abs(owner.share) >= 0.1), key=lambda owner: -abs(owner.share))
-    return ", ".join(f"{titles.get(owner.part, owner.part)} {fraction(owner.share)}" for owner in large[:most])
+    return ", ".join(f"{_owner_title(owner.part, titles)} {fraction(owner.share)}" for owner in large[:most])
+
+
+def _owner_title(name: str, titles: Mapping[str, str]) -> str:
+    """Give the title of what owns a pole; the all-pass in the place of a delay ("Q1.gm.delay") is no part."""
+    if name not in titles and name.endswith(".delay"):
+        return f"delay of {name.rsplit('.', 2)[0]}"
+    return titles.get(name, name)
 
 
 def withheld(review: Review) -> str:
