@@ -9,13 +9,21 @@ from dataclasses import dataclass
 import pytest
 from msgspec.structs import replace
 
+from report.cursors import WITH_FACTORS
 from report.literal import ECHO_PREAMP
 from report.markup import HTML, SVG, hostile, parse, rejected, without_plateau, words
+from report.test_curve import CURVE
 from tauledger.record import Review
 from tauledger.report.charts.style import PALETTE
 from tauledger.report.html import to_html, typeset
 
-REVIEWS = {"usual": ECHO_PREAMP, "hostile": hostile(), "rejected": rejected(), "without plateau": without_plateau()}
+REVIEWS = {
+    "usual": ECHO_PREAMP,
+    "hostile": hostile(),
+    "rejected": rejected(),
+    "without plateau": without_plateau(),
+    "measured": replace(WITH_FACTORS, curve=CURVE),
+}
 
 
 @dataclass(frozen=True)
@@ -75,6 +83,21 @@ def test_every_picture_says_what_it_shows(pages: dict[str, Page]) -> None:
         assert title is not None
         assert picture.get("aria-labelledby") == title.get("id")
         assert len(words(title)) > 20
+
+
+def test_nothing_moves_by_itself(pages: dict[str, Page]) -> None:
+    """There is nothing to be reduced for those who asked for less motion."""
+    assert not re.search(r"transition|animation|@keyframes|scroll-behavior|<animate", pages["measured"].text)
+
+
+def test_what_the_mouse_does_the_keyboard_does_too(pages: dict[str, Page]) -> None:
+    root = parse(pages["measured"].raw)
+    (slider,) = [element for element in root.iter(f"{HTML}input") if element.get("type") == "range"]
+    labels = [words(label) for label in root.iter(f"{HTML}label") if label.get("for") == slider.get("id")]
+    assert labels == ["Frequency"]
+    scrolled = [element for element in root.iter(f"{HTML}div") if element.get("class") == "scroll"]
+    assert scrolled
+    assert all(element.get("tabindex") == "0" and element.get("aria-label") for element in scrolled)
 
 
 def test_text_in_pictures_is_text(pages: dict[str, Page]) -> None:
