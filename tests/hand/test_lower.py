@@ -4,12 +4,14 @@ from __future__ import annotations
 
 import math
 
+import amplifiers
 import boards
 from cells import bands_of, bipolar, board, near
-from tauledger.devices.parts import capacitance, inductance, resistance
+from tauledger.devices.parts import capacitance, inductance, resistance, transconductance
 from tauledger.hand.estimate import LowerRow
 from tauledger.hand.lower import lower_rows
 from tauledger.network.assemble import Network
+from tauledger.network.bands import classify, find_midband
 
 
 def rows(network: Network) -> dict[str, LowerRow]:
@@ -143,3 +145,20 @@ def test_a_large_coupling_capacitor_stays_in_the_path() -> None:
     found = rows(boards.follower_then_common_source_low_edge())
     assert found["C2"].edge_hand_hz < 0.003 * found["C3"].edge_hand_hz
     assert found["C2"].in_path
+
+
+def test_a_capacitor_without_which_a_node_hangs_on_nothing_makes_no_row() -> None:
+    """A gate that a servo holds by 1 kH and 1 F: with the capacitor taken out nothing is left at it."""
+    network = amplifiers.network(
+        resistance("RS", "in", "p", 1e3),
+        transconductance("M1", ("0", "out"), ("p", "g"), 1e-3),
+        resistance("RD", "out", "0", 1e3),
+        capacitance("CD", "out", "0", 1e-6),
+        inductance("LS", "out", "g", 1e3),
+        capacitance("CS", "g", "0", 1.0),
+    )
+    bands = classify(network, find_midband(network, at_hz=5.0))
+    assert (bands.class_of["LS"], bands.class_of["CS"]) == ("open", "short")
+    found = {row.parts[0]: row for row in lower_rows(bands, ())}
+    assert "CS" not in found
+    assert found["LS"].edge_hand_hz == near(1e3 / (2.0 * math.pi * 1e3), rel=1e-6)

@@ -37,7 +37,7 @@ def lower_rows(
 
     constants: of `short_constants`, which says what belongs together, what counts and which zero each makes; here the
     resistance is added as looking-in rules give it, and with it the edge, 1/(2π·R·C) or R/(2π·L).
-    Capacitors with both ends at one node make no row.
+    Capacitors with both ends at one node make no row, nor those that face no resistance.
     Raises NetworkError where the mid-band circuit has no unique solution.
     """
     network = bands.network
@@ -51,6 +51,9 @@ def lower_rows(
     for constant in (constants or short_constants(bands)).parts:
         if bands.gain_setting.issuperset(constant.names):
             found.append(_gain_row(constant))
+            continue
+        if math.isinf(constant.resistance_ohm):
+            # with it taken out a node hangs on nothing: no resistance to look into, and no edge
             continue
         smaller, merged = joined(network, shorts - {*constant.names}, {*constant.names, *opens})
         circuit = equivalent_circuit(smaller, merged, devices, network, bands.s_mid)
