@@ -511,7 +511,7 @@ class CurvePoint(Struct, frozen=True):
 
 
 class CurveFigure(Struct, frozen=True):
-    """One figure of a measured curve (f_low, f_high, f_unity) in Hz beside the simulated one."""
+    """One figure of a measured curve (f_low, f_high, f_unity), its level taken out, in Hz beside the simulated one."""
 
     figure: str
     measured_hz: float

@@ -85,6 +85,19 @@ def test_level_and_turns_of_the_bench_are_taken_out_and_told(engine: Engine) -> 
     assert found.explains == "nothing to explain"
 
 
+def test_unity_gain_is_compared_at_the_level_of_the_simulation(engine: Engine) -> None:
+    """With a probe of 10:1 the bare curve would cross 0 dB a decade too early."""
+    found = compared(engine, "mos_gain.cir", bench(engine, "mos_gain.cir", db=-20.0))
+    (unity,) = (figure for figure in found.figures if figure.figure == "f_unity")
+    assert unity.simulated_hz is not None
+    assert unity.measured_hz == pytest.approx(unity.simulated_hz, rel=1e-3)
+
+
+def test_more_than_any_stray_explains_nothing(engine: Engine) -> None:
+    found = compared(engine, "echo_preamp.cir", bench(engine, "echo_preamp.cir", with_stray("out", "0", 100e-9)))
+    assert all(stray.capacitance_f < 10e-9 for stray in found.strays)
+
+
 def test_a_wider_band_than_simulated_is_no_stray(engine: Engine) -> None:
     less = Change(elements=(("CL", 1e-12),))
     found = compared(engine, "echo_preamp.cir", bench(engine, "echo_preamp.cir", less))

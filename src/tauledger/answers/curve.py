@@ -169,15 +169,15 @@ def _crossing(frequency: Real, inside: Real) -> float | None:
 
 
 def _figures(beside: _Beside, found: Review, midband: MidBand, level_db: float, run: Run) -> tuple[CurveFigure, ...]:
-    """Set the measured band edges and unity-gain frequency beside the simulated ones; those that the curve reaches."""
+    """Set band edges and unity gain beside the simulated ones, the level taken out; those that the curve reaches."""
     figures = []
     edge_db = level_db - HALF_POWER_DB
     for name, edge, upwards in (("f_low", found.f_low, False), ("f_high", found.f_high, True)):
         hz = _falls_below(beside, midband, edge_db, run, upwards=upwards)
         if hz is not None:
             figures.append(CurveFigure(name, hz, _reference_hz(edge)))
-    if found.midband.unit in ("V/V", "A/A") and level_db > HALF_POWER_DB:
-        unity = _falls_below(beside, midband, 0.0, run, upwards=True)
+    if found.midband.unit in ("V/V", "A/A") and level_db - beside.offset_db > HALF_POWER_DB:
+        unity = _falls_below(beside, midband, beside.offset_db, run, upwards=True)
         if unity is not None:
             figures.append(CurveFigure("f_unity", unity, _unity(found)))
     return tuple(figures)

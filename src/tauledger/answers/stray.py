@@ -13,6 +13,8 @@ from tauledger.network.solve import Complex, Real
 from tauledger.numbers import Numbers
 
 SMALLEST_F, LARGEST_F = 1e-15, 10e-9
+# An error that still falls at the end of the range has its least value beyond: that is no stray.
+AT_THE_END = 0.99
 STEPS_PER_DECADE = 6
 GOLDEN = (np.sqrt(5.0) - 1.0) / 2.0
 NARROWINGS = 45
@@ -74,7 +76,8 @@ def find_strays(target: Target, numbers: Numbers, explanation: Explanation) -> t
     before = float(_rms(target, decibels(response_with(found, np.zeros(len(pairs)))))[0])
     farad, error = _best(target, found)
     strays = [Stray(*pair, float(f), float(e)) for pair, f, e in zip(pairs, farad, error, strict=True)]
-    strays = sorted((s for s in strays if s.rms_db <= HALF * before), key=lambda s: s.rms_db)
+    inside = (s for s in strays if s.rms_db <= HALF * before and s.farad < AT_THE_END * LARGEST_F)
+    strays = sorted(inside, key=lambda s: s.rms_db)
     if not strays:
         return ()
     to_ground = next((s for s in strays if s.minus == GROUND), None)
