@@ -8,6 +8,7 @@ timed assertion: machines differ and are shared.
 
 from __future__ import annotations
 
+import os
 import statistics
 import time
 
@@ -39,6 +40,8 @@ def stages(kind: str) -> Circuit:
 
 @pytest.fixture(scope="module")
 def spice() -> Spice:
+    # as the worker has it
+    os.environ["OMP_NUM_THREADS"] = "1"
     return Spice(find_library(""))
 
 
