@@ -236,9 +236,16 @@ def test_a_method_that_is_right_alone_is_so_by_luck() -> None:
 def test_what_keeps_every_method_off_is_named_with_the_nearest() -> None:
     pair = of_nodes([1e-6, 1e-6], [-1e6 + 3e6j, -1e6 - 3e6j])
     assert pair.two_coefficients is not None
-    told = why_none(pair, 0.5 * pair.two_coefficients)
+    told = why_none(pair, 0.75 * pair.two_coefficients)
     assert told.startswith("the poles are a complex pair (Q = 1.6 from two coefficients)")
     assert told.endswith("% off")
+
+
+def test_an_edge_far_from_all_poles_and_zeros_is_set_by_what_they_leave_out() -> None:
+    """A line's delay, for one: the poles take it as at DC."""
+    single = of_nodes([1e-6], [-1e6])
+    told = why_none(single, 0.1 * 1e6 / (2 * math.pi))
+    assert told.startswith("what poles and zeros leave out sets the edge, they give +900 %;")
 
 
 def test_a_recommendation_needs_no_reason() -> None:

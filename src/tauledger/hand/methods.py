@@ -20,6 +20,8 @@ ZERO_MATTERS = 0.10
 AS_GOOD = 0.04
 OF_USE = 0.10
 BY_LUCK = 0.05
+# All poles and zeros are the whole response but for lines and the other edge.
+OUTSIDE = 0.50
 UPPER = ("lowest node alone", "all nodes together")
 LOWER = ("highest capacitor alone", "all capacitors together")
 SIMPLEST = ("sum of time constants", "two coefficients", "root of sum of squares", "weighted sum")
@@ -164,7 +166,10 @@ def _misses(combined: Combined, what: tuple[str, str], hz: Mapping[str, float | 
             f"{alone} is {percent(off[alone])} off by luck, its errors cancel; {best}, the nearest that has a reason, "
             f"is {percent(off[best])} off"
         )
-    return f"{_why_far(combined)}; {best}, the nearest, is {percent(off[best])} off"
+    why = _why_far(combined)
+    if combined.with_zeros is not None and abs(combined.with_zeros / exact_hz - 1.0) > OUTSIDE:
+        why = f"what poles and zeros leave out sets the edge, they give {percent(combined.with_zeros / exact_hz - 1.0)}"
+    return f"{why}; {best}, the nearest, is {percent(off[best])} off"
 
 
 def _why_far(combined: Combined) -> str:
