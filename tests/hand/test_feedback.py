@@ -14,6 +14,7 @@ from tauledger.devices.parts import Part, capacitance, current_source, resistanc
 from tauledger.engine.client import Engine
 from tauledger.explain import explain
 from tauledger.hand.budget import signal_nodes
+from tauledger.hand.catalogue import entries
 from tauledger.hand.feedback import FoundLoop, HandLoop, find_loop, hand_loop
 from tauledger.hand.ideal_gain import IdealGain, ideal_gain
 from tauledger.hand.stages import stage_rows
@@ -226,3 +227,8 @@ def test_of_the_boards_of_one_role_only_shunt_feedback_has_a_loop(
     assert hand is not None
     loop = find_loop(numbers.network, numbers.devices, hand.nodes, hand.stages, numbers.midband.frequency_hz)
     assert (loop is not None) == (role == "shunt feedback")
+
+
+def test_the_methods_of_global_feedback_are_listed() -> None:
+    listed = [entry.name for entry in entries() if entry.group == "global feedback"]
+    assert {"return ratio", "asymptotic gain", "closed-loop band edge", "noise gain", "double injection"} <= {*listed}

@@ -46,6 +46,8 @@ WORTH_TELLING = 0.02
 OPEN_BELOW = 1e4
 FAR_BELOW = 1e3
 COARSE = 4
+# An edge by hand that is off by more than this factor misses what makes it, and is none.
+NO_ESTIMATE = 3.0
 
 
 class _Simulated(Struct, frozen=True):
@@ -201,7 +203,7 @@ def _with_hand(facts: LoopFacts, subject: Subject, place: Place) -> LoopFacts:
     if facts.open_edge_hz is None:
         return facts
     opened = open_loop(numbers.bands, numbers.devices, place.loop, facts.open_edge_hz)
-    if opened is None:
+    if opened is None or not 1.0 / NO_ESTIMATE < opened.edge_hz / facts.open_edge_hz < NO_ESTIMATE:
         return facts
     nodes = tuple(LoopNodeFacts(one.node, float(one.ohm), float(one.farad), float(one.seconds)) for one in opened.nodes)
     return replace(facts, hand_open_edge_hz=float(opened.edge_hz), hand_open_nodes=nodes)

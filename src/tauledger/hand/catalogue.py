@@ -276,4 +276,4 @@ def entries() -> tuple[Entry, ...]:
     """Give every rule and method, in the order in which a reader needs them."""
     rules = tuple(Entry("looking in", rule.name, rule.formula, rule.valid, rule.source, rule.short) for rule in RULES)
     compensation = tuple(Entry("unity gain", f.name, f.written, f.valid, f.source) for f in FORMULAS)
-    return (*rules, *INDUCTORS, *LOOPS, *CAPACITANCES, *METHODS, *RECOMMENDED, *LOWER_POLES, *compensation)
+    return (*rules, *INDUCTORS, *LOOPS, *GLOBAL, *CAPACITANCES, *METHODS, *RECOMMENDED, *LOWER_POLES, *compensation)

@@ -22,6 +22,8 @@ POINTS_PER_DECADE = 20
 HIGHEST_HZ = 1e12
 NARROWED_TO = 17
 ROUNDS = 7
+# Below this T is what rounding leaves, and its phase means nothing.
+ROUNDING_DB = -180.0
 HALF_POWER = 1.0 / np.sqrt(2.0)
 
 
@@ -85,11 +87,11 @@ def loop_shape(ratio_at: RatioAt, frequency_hz: Real, at_hz: float) -> LoopShape
     """
     ratio = ratio_at(frequency_hz)
     at_reference = complex(ratio_at(np.array([at_hz]))[0])
-    size = np.log(np.maximum(np.abs(ratio), np.finfo(float).tiny))
+    size = _decibel(ratio)
     phase = _phase(frequency_hz, ratio, at_hz, at_reference)
     crossings = []
     for k in np.flatnonzero((size[:-1] > 0.0) != (size[1:] > 0.0)):
-        hz = _narrow(lambda f: np.log(np.abs(ratio_at(f))), float(frequency_hz[k]), float(frequency_hz[k + 1]))
+        hz = _narrow(lambda f: _decibel(ratio_at(f)), float(frequency_hz[k]), float(frequency_hz[k + 1]))
         angle = _near(float(np.angle(ratio_at(np.array([hz]))[0], deg=True)), float(phase[k]), float(phase[k + 1]))
         crossings.append(Crossing(hz, 180.0 + angle, bool(size[k] > 0.0)))
     return LoopShape(
@@ -117,7 +119,7 @@ def edge_above(
     if not np.any(low) or bool(low[0]):
         return None
     k = int(np.argmax(low))
-    return _narrow(lambda f: np.log(size_at(f) / (HALF_POWER * reference)), float(above[k - 1]), float(above[k]))
+    return _narrow(lambda f: size_at(f) / (HALF_POWER * reference) - 1.0, float(above[k - 1]), float(above[k]))
 
 
 def margins_near(ratio: Complex, frequency_hz: Real, phase_near_deg: float) -> Crossing | None:
@@ -173,8 +175,15 @@ def _turns(ratio_at: RatioAt, frequency_hz: Real, phase: Real) -> tuple[Turn, ..
     found = []
     for k in np.flatnonzero(sheet[:-1] != sheet[1:]):
         hz = _narrow(lambda f: np.angle(-ratio_at(f)), float(frequency_hz[k]), float(frequency_hz[k + 1]))
-        found.append(Turn(hz, float(20.0 * np.log10(np.abs(ratio_at(np.array([hz]))[0])))))
+        gain_db = float(_decibel(ratio_at(np.array([hz])))[0])
+        if gain_db > ROUNDING_DB:
+            found.append(Turn(hz, gain_db))
     return tuple(found)
+
+
+def _decibel(ratio: Complex) -> Real:
+    """Give |T| in dB; where it is nothing at all, very little."""
+    return np.asarray(20.0 * np.log10(np.maximum(np.abs(ratio), np.finfo(float).tiny)), dtype=np.float64)
 
 
 def _narrow(value_at: Callable[[Real], Real], low: float, high: float) -> float:
