@@ -43,7 +43,8 @@ def test_the_wheel_has_every_module_and_every_file_that_is_read_as_data(wheel: P
         f"tauledger/{path.relative_to(ROOT / 'src/tauledger')}" for path in (ROOT / "src/tauledger").rglob("*.py")
     }
     data = {"tauledger/py.typed", "tauledger/COPYING", "tauledger/report/review.schema.json"}
-    data |= {f"tauledger/report/{name}" for name in ("page.html.j2", "index.html.j2", "page.css", "page.js")}
+    scripts = ("page.js", "cursor.js")
+    data |= {f"tauledger/report/{name}" for name in ("page.html.j2", "index.html.j2", "page.css", *scripts)}
     grammar = {f"tauledger/grammar/{path.name}" for path in (ROOT / "grammar").iterdir() if path.is_file()}
     assert packed == package | data | grammar
 
