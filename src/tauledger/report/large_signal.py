@@ -39,7 +39,7 @@ def first_limit(review: Review) -> str:
     edge = None if review.f_high is None else review.f_high.simulated_hz or review.f_high.exact_hz
     if edge is not None:
         part = slowest.full_power_hz / edge
-        text += f", {part:.2g} f_H" if part < 99.5 else f", {part:.0f} f_H"
+        text += f", {part:.2g}·f_H" if part < 99.5 else f", {part:.0f}·f_H"
         text += " only" if part < 1.0 else ""
     weak = min(facts.nodes, key=lambda node: node.cut_off_v or float("inf"))
     if weak.cut_off_v is not None and weak.cut_off_v <= facts.swing_v:
