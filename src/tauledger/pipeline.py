@@ -13,7 +13,7 @@ from typing import TYPE_CHECKING
 
 from msgspec.structs import replace
 
-from tauledger.answers.answer import Subject, answer
+from tauledger.answers.answer import Subject, answer, with_unity_gain
 from tauledger.asked import NOTHING_ASKED, Asked
 from tauledger.circuit import GROUND, NO_CHANGE, Change, Port, joined
 from tauledger.compose.review import compose
@@ -100,19 +100,22 @@ def review(
 
         setting = joined(change_of(netlist, settings), added(netlist, add))
         unset = solve(netlist, change, engine, drive=drive, output=output, midband_hz=midband_hz, fold=fold)
-        before = compose(unset, explain(unset), netlist=netlist)
+        explained = explain(unset)
+        subject = Subject(unset, explained, netlist, change, engine)
+        before = with_unity_gain(compose(unset, explained, netlist=netlist), subject, asked=False)
         change = joined(change, setting)
     numbers = solve(netlist, change, engine, drive=drive, output=output, midband_hz=midband_hz, fold=fold)
     explanation = explain(numbers)
     found = compose(numbers, explanation, netlist=netlist)
-    if before is not None:
-        from tauledger.compose.changed import added_parts, moved_figures, set_values
-
-        moved = moved_figures(before, found)
-        found = replace(found, settings=set_values(setting), added=added_parts(setting), moved=moved)
     if page is not None:
         found = _with_page(found, page, numbers, explanation)
-    return answer(found, Subject(numbers, explanation, netlist, change, engine), asked)
+    found = answer(found, Subject(numbers, explanation, netlist, change, engine), asked)
+    if before is None:
+        return found
+    from tauledger.compose.changed import added_parts, moved_figures, set_values
+
+    moved = moved_figures(before, found)
+    return replace(found, settings=set_values(setting), added=added_parts(setting), moved=moved)
 
 
 def devices(

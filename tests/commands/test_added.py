@@ -71,7 +71,22 @@ def test_headline_figures_stand_before_and_after(run: Run) -> None:
         assert moved[figure]["after"] == pytest.approx(added["midband"][value])
     assert moved["f_H simulated"]["before"] == pytest.approx(plain["f_high"]["simulated_hz"])
     assert moved["f_H simulated"]["after"] == pytest.approx(added["f_high"]["simulated_hz"])
+    for figure, value in (
+        ("f_u simulated", "simulated_hz"),
+        ("f_u exact", "exact_hz"),
+        ("phase margin simulated", "phase_margin_deg"),
+        ("phase margin exact", "phase_margin_exact_deg"),
+    ):
+        assert moved[figure]["before"] == pytest.approx(plain["f_unity"][value], rel=1e-6)
+        assert moved[figure]["after"] == pytest.approx(added["f_unity"][value], rel=1e-6)
+    assert moved["f_u simulated"]["after"] < 0.9 * moved["f_u simulated"]["before"]
     assert plain["added"] == []
+
+
+def test_unity_gain_stands_there_only_where_both_have_it(run: Run) -> None:
+    loaded = document(run, "board.cir", "--add", "c=10")
+    assert loaded["f_unity"] is None
+    assert not [figure for figure in loaded["moved"] if figure["figure"].startswith(("f_u", "phase margin"))]
 
 
 def test_the_page_names_the_added_part(run: Run, tmp_path: Path) -> None:

@@ -24,15 +24,17 @@ def test_figures_that_move_stand_before_and_after_with_their_change() -> None:
         MovedFigure("f_H simulated", "Hz", 733.5e3, 631.5e3),
         MovedFigure("f_H phase shift", "deg", -47.3, -47.0),
         MovedFigure("f_L simulated", "Hz", None, 12.0),
+        MovedFigure("phase margin exact", "deg", 62.5, 58.0),
         MovedFigure("f_H peak", "dB", 0.0, 0.0),
     )
     at = lines.index("SET R3 = 4700, nsmall.bf = 100")
-    assert [" ".join(line.split()) for line in lines[at + 1 : at + 7]] == [
+    assert [" ".join(line.split()) for line in lines[at + 1 : at + 8]] == [
         "figure as in the netlist as set change",
         "gain 39.63 dB 40.70 dB +1.07 dB",
         "f_H simulated 733.5 kHz 631.5 kHz -14 %",
         "f_H phase shift -47.3° -47.0° +0.3°",
         "f_L simulated – 12.00 Hz –",
+        "phase margin exact 62.5° 58.0° -4.5°",
         "unchanged: f_H peak",
     ]
 

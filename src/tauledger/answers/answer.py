@@ -10,6 +10,7 @@ from tauledger.circuit import Change
 from tauledger.engine.client import Engine
 from tauledger.explain import Explanation
 from tauledger.netlist import Netlist
+from tauledger.network.unity import is_ratio
 from tauledger.numbers import Numbers
 from tauledger.record import Review
 
@@ -32,10 +33,7 @@ def answer(found: Review, subject: Subject, asked: Asked) -> Review:
 
     Raises InputError for a question that this circuit cannot answer.
     """
-    if asked.unity or (found.midband.unit in ("V/V", "A/A") and found.midband.gain_db > 0.0):
-        from tauledger.answers.unity import unity_facts
-
-        found = replace(found, f_unity=unity_facts(found, subject, asked=asked.unity))
+    found = with_unity_gain(found, subject, asked=asked.unity)
     if found.f_unity is not None and found.f_unity.elements:
         from tauledger.answers.phase_budget import phase_budget
 
@@ -81,6 +79,18 @@ def answer(found: Review, subject: Subject, asked: Asked) -> Review:
 
         found = replace(found, wants=want_facts(found, subject, asked.wants))
     return found
+
+
+def with_unity_gain(found: Review, subject: Subject, *, asked: bool) -> Review:
+    """Add f_u and its margins where the gain is a plain ratio above 1.
+
+    asked: who sets them is wanted wherever there is one. Raises InputError where it was asked and there is none.
+    """
+    if not asked and not (is_ratio(subject.numbers.network) and found.midband.gain_db > 0.0):
+        return found
+    from tauledger.answers.unity import unity_facts
+
+    return replace(found, f_unity=unity_facts(found, subject, asked=asked))
 
 
 def may_have_a_loop(subject: Subject) -> bool:

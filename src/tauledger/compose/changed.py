@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from tauledger.circuit import Change
-from tauledger.record import AddedPart, EdgeFacts, MovedFigure, Review, SetValue
+from tauledger.record import AddedPart, EdgeFacts, MovedFigure, Review, SetValue, UnityFacts
 
 
 def set_values(change: Change) -> tuple[SetValue, ...]:
@@ -22,7 +22,10 @@ DECIBELS = {"Ω": "dBΩ", "S": "dBS"}
 
 
 def moved_figures(before: Review, after: Review) -> tuple[MovedFigure, ...]:
-    """Set the figures of the headline side by side, mid-band and both edges; what neither has is left out."""
+    """Set the figures of the headline side by side: mid-band, both edges, unity gain.
+
+    What neither review has is left out, and of unity gain what only one has.
+    """
     rows = [
         MovedFigure("gain", DECIBELS.get(after.midband.unit, "dB"), before.midband.gain_db, after.midband.gain_db),
         MovedFigure("plateau from", "Hz", before.midband.from_hz, after.midband.from_hz),
@@ -30,6 +33,8 @@ def moved_figures(before: Review, after: Review) -> tuple[MovedFigure, ...]:
     ]
     for name, old, new in (("f_L", before.f_low, after.f_low), ("f_H", before.f_high, after.f_high)):
         rows += _edge(name, old, new)
+    if before.f_unity is not None and after.f_unity is not None:
+        rows += _unity_gain(before.f_unity, after.f_unity)
     return tuple(row for row in rows if row.before is not None or row.after is not None)
 
 
@@ -50,4 +55,17 @@ def _edge(name: str, old: EdgeFacts | None, new: EdgeFacts | None) -> list[Moved
             None if new is None else getattr(new, field),
         )
         for words, unit, field in figures
+    ]
+
+
+def _unity_gain(old: UnityFacts, new: UnityFacts) -> list[MovedFigure]:
+    return [
+        row
+        for row in (
+            MovedFigure("f_u simulated", "Hz", old.simulated_hz, new.simulated_hz),
+            MovedFigure("f_u exact", "Hz", old.exact_hz, new.exact_hz),
+            MovedFigure("phase margin simulated", "deg", old.phase_margin_deg, new.phase_margin_deg),
+            MovedFigure("phase margin exact", "deg", old.phase_margin_exact_deg, new.phase_margin_exact_deg),
+        )
+        if row.before is not None and row.after is not None
     ]

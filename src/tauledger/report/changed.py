@@ -72,7 +72,10 @@ def shown(figure: MovedFigure, value: float | None) -> str:
         return NO_NUMBER
     if figure.unit.startswith("dB"):
         return f"{value:.2f} {figure.unit}"
-    return f"{value:+.1f}°" if figure.unit == "deg" else number(value, figure.unit)
+    if figure.unit != "deg":
+        return number(value, figure.unit)
+    # a shift leads or lags; what is left of a margin is an amount
+    return f"{value:.1f}°" if figure.figure.startswith("phase margin") else f"{value:+.1f}°"
 
 
 def by(figure: MovedFigure) -> str:
