@@ -15,7 +15,7 @@ from tauledger.netlist import elaborate, hints, read, read_past
 from tauledger.netlist.diagnostics import unsafe
 
 FIXTURES = Path(__file__).parents[2] / "fixtures"
-SEEDS = [path.read_text(encoding="latin-1") for path in sorted(FIXTURES.rglob("*.cir"))] + list(BOARDS.values())
+ORIGINALS = [path.read_text(encoding="latin-1") for path in sorted(FIXTURES.rglob("*.cir"))] + list(BOARDS.values())
 
 # What cards are made of, and what has broken readers before.
 FRAGMENTS = [
@@ -29,8 +29,8 @@ FRAGMENTS = [
 
 @st.composite
 def mutated(draw: st.DrawFn) -> str:
-    """A seed with up to eight places cut, doubled or replaced."""
-    text = draw(st.sampled_from(SEEDS))
+    """A netlist with up to eight places cut, doubled or replaced."""
+    text = draw(st.sampled_from(ORIGINALS))
     for _ in range(draw(st.integers(1, 8))):
         at = draw(st.integers(0, len(text)))
         length = draw(st.integers(0, 12))

@@ -8,7 +8,8 @@ cards, assignments               the items of a card: grammar/card.lark, and a f
 expressions, behaviour           the two dialects of formulas: numbers before the run, formulas of the circuit
 scopes, conditions               parameters and functions, `.if`
 elements, passive, sources, controlled, models, bins, letters    what places and keywords mean
-flatten, bulk, instances, lookup, surroundings, references, draft    instances → the flat circuit
+flatten, instances, surroundings, draft    instances → the flat circuit
+instantiate, bulk, lookup, references      its elements: one by one, plain ones at once; the models that they mean
 ports, hints                     drive and output
 writer, hierarchy, origin, settings, added    the flat deck, the tree, where a value came from, NAME=VALUE
 

@@ -9,7 +9,7 @@ from tauledger.circuit import Change, Circuit, fold
 from tauledger.errors import InputError
 from tauledger.netlist.diagnostics import nearest, visible
 from tauledger.netlist.elaborate import elaborated
-from tauledger.netlist.flatten import settable
+from tauledger.netlist.instantiate import settable
 from tauledger.netlist.netlist import Netlist
 from tauledger.netlist.numbers import read_number
 from tauledger.netlist.scopes import Scope
