@@ -5,8 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
-from agreement import worst as worst_of
-from agreement import write_table
+from agreement import worst_of
 from circuits import board, changed
 from tauledger.circuit import Circuit, Model, Port
 from tauledger.devices.catalogue import linearise, observations
@@ -233,10 +232,4 @@ FAMILIES = {
 def test_worst_agreement_is_what_the_developers_page_keeps(
     engine: Engine, pytestconfig: pytest.Config, capsys: pytest.CaptureFixture[str]
 ) -> None:
-    """With --write-tables the rows of the table are printed; without, one circuit of a family is enough."""
-    whole = bool(pytestconfig.getoption("--write-tables"))
-    rows = worst_of(FAMILIES, engine, whole=whole)
-    if whole:
-        with capsys.disabled():
-            write_table(rows)
-    assert max(error for _, _, error in rows) < 1e-9
+    assert worst_of(FAMILIES, engine, pytestconfig, capsys) < 1e-9

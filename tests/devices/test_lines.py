@@ -7,8 +7,7 @@ from pathlib import Path
 import numpy as np
 import pytest
 
-from agreement import rebuilt, write_table
-from agreement import worst as worst_of
+from agreement import rebuilt, worst_of
 from circuits import NPN, board
 from tauledger.circuit import NO_CHANGE, Circuit, Model
 from tauledger.devices.catalogue import choose
@@ -202,10 +201,4 @@ FAMILIES = {
 def test_worst_agreement_is_what_the_developers_page_keeps(
     engine: Engine, pytestconfig: pytest.Config, capsys: pytest.CaptureFixture[str]
 ) -> None:
-    """With --write-tables the rows of the table are printed; without, one circuit of a family is enough."""
-    whole = bool(pytestconfig.getoption("--write-tables"))
-    rows = worst_of(FAMILIES, engine, whole=whole)
-    if whole:
-        with capsys.disabled():
-            write_table(rows)
-    assert max(error for _, _, error in rows) < 1e-9
+    assert worst_of(FAMILIES, engine, pytestconfig, capsys) < 1e-9

@@ -8,7 +8,7 @@ from tauledger.devices.bsim import BSIM3, BSIM4
 from tauledger.devices.controlled import CURRENT_GAIN, TRANSCONDUCTANCE, TRANSRESISTANCE, VOLTAGE_GAIN
 from tauledger.devices.coupling import COUPLING
 from tauledger.devices.diode import DIODE
-from tauledger.devices.family import Device, Family, Linearised, Refusal
+from tauledger.devices.family import WITH_INNER_NODES, Device, Family, Linearised, Refusal
 from tauledger.devices.fitted import FITTED
 from tauledger.devices.gummel_poon import GUMMEL_POON
 from tauledger.devices.jfet import LEVEL_1 as JFET_1
@@ -19,7 +19,7 @@ from tauledger.devices.meyer import LEVEL_2 as MOS_2
 from tauledger.devices.meyer import LEVEL_3 as MOS_3
 from tauledger.devices.meyer import LEVEL_6 as MOS_6
 from tauledger.devices.meyer import LEVEL_9 as MOS_9
-from tauledger.devices.parts import Part, resistance
+from tauledger.devices.parts import Part, conductance
 from tauledger.devices.passives import CAPACITOR, INDUCTOR, RESISTOR, passive_part
 from tauledger.devices.sources import CURRENT_SOURCE, VOLTAGE_SOURCE
 from tauledger.devices.switches import CURRENT_SWITCH, VOLTAGE_SWITCH
@@ -150,19 +150,25 @@ def linearise(circuit: Circuit, bias: Bias) -> Linearised:
     return Linearised((*found, *_shunts(circuit, found)), tuple(devices))
 
 
+def shunt_siemens(circuit: Circuit) -> float:
+    """Give what `.options rshunt` puts from every node to ground, S; 0 without."""
+    ohm = dict(circuit.options).get("rshunt")
+    return 0.0 if ohm is None else 1.0 / ohm
+
+
 def _shunts(circuit: Circuit, parts: tuple[Part, ...]) -> tuple[Part, ...]:
     """Give what `.options rshunt` puts from every node to ground, those behind series resistances included.
 
     An instance that was measured alone has those of its own inner nodes in its block.
     """
-    ohm = dict(circuit.options).get("rshunt")
-    if ohm is None:
+    siemens = shunt_siemens(circuit)
+    if not siemens:
         return ()
     measured = {part.owner for part in parts if part.kind == "block"}
-    devices = {element.name for element in circuit.elements if element.letter in "QDJMZ"} - measured
+    devices = {element.name for element in circuit.elements if element.letter in WITH_INNER_NODES} - measured
     inside = [node for part in parts if part.owner in devices for node in part.nodes if node not in circuit.nodes]
     nodes = dict.fromkeys((*circuit.nodes[1:], *inside))
-    return tuple(resistance(f"Rshunt.{node}", node, GROUND, ohm) for node in nodes)
+    return tuple(conductance(f"Rshunt.{node}", node, GROUND, siemens) for node in nodes)
 
 
 def _family(circuit: Circuit, element: Element) -> Family:

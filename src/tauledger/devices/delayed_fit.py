@@ -14,18 +14,15 @@ from msgspec import Struct
 
 from tauledger.devices.family import inner_node
 from tauledger.devices.fit import (
-    ACCEPTED,
-    AT_REST,
-    HIGH_HZ,
-    ROUNDING,
     STATE_SIEMENS,
     Complex,
     Fit,
+    Index,
     Real,
-    least_squares,
-    refused,
-    scaled,
-    states,
+    at_terminals,
+    first_accepted,
+    fitted_rows,
+    rest_apart,
 )
 from tauledger.devices.parts import Part, delayed_transconductance, transconductance
 from tauledger.solution import Samples
@@ -49,13 +46,11 @@ def fit_delayed(samples: Samples, delay: Delay) -> Fit:
 
     Raises ElementError where no such matrices describe it.
     """
-    worst = np.inf
-    for floor in AT_REST:
-        found = _checked(samples, delay, states(samples, floor))
-        if found.error <= ACCEPTED:
-            return found
-        worst = min(worst, found.error)
-    raise refused(samples.element, worst)
+    return first_accepted(
+        samples,
+        lambda z, at: _fit(samples, delay, z, at),
+        lambda found, frequency_hz: _admittance(found, delay, frequency_hz),
+    )
 
 
 def delay_parts(owner: str, fit: Fit, delay: Delay) -> tuple[Part, ...]:
@@ -68,59 +63,32 @@ def delay_parts(owner: str, fit: Fit, delay: Delay) -> tuple[Part, ...]:
     )
 
 
-def _checked(samples: Samples, delay: Delay, z: Complex) -> Fit:
-    """Fit, and compare with every frequency; a second fit that leaves out every second frequency with those."""
-    y, frequency = samples.admittance, samples.frequency_hz
-    every, half = np.arange(len(frequency)), np.arange(0, len(frequency), 2)
-    size = np.abs(y).max(axis=(1, 2))
-    size = np.maximum(size, ROUNDING * size.max()).clip(min=np.finfo(float).tiny)
-    error = 0.0
-    for at, compared in ((half, every[1::2]), (every, every)):
-        whole = _fit(frequency[at], y[at], z[at], delay.factor(frequency[at])[:, None] * delay.control[at], delay, at)
-        found = _admittance(whole, delay, frequency[compared])
-        error = max(error, float((np.abs(found - y[compared]).max(axis=(1, 2)) / size[compared]).max()))
-    return Fit(whole.terminals, whole.conductance, whole.capacitance, error)
-
-
-def _fit(frequency_hz: Real, y: Complex, z: Complex, current: Complex, delay: Delay, at: np.ndarray) -> Fit:
+def _fit(samples: Samples, delay: Delay, states: Complex, at: Index) -> Fit:
+    frequency_hz, y, z = samples.frequency_hz[at], samples.admittance[at], states[at]
     n, k = y.shape[1], z.shape[1]
     omega = 2.0 * np.pi * frequency_hz
     terminals = np.broadcast_to(np.eye(n, dtype=complex), (len(y), n, n))
     x = np.concatenate([terminals, z], axis=1).transpose(0, 2, 1)
+    current = delay.factor(frequency_hz)[:, None] * delay.control[at]
     equations = np.concatenate([x, current[:, :, None], 1j * omega[:, None, None] * x], axis=2)
-    rows = [least_squares(equations, y[:, i, :]) for i in range(n)]
-    if k:
-        weighted, scale = scaled(equations, 1.0 / (1.0 + frequency_hz / HIGH_HZ))
-        _, _, vt = np.linalg.svd(weighted, full_matrices=False)
-        rows += list(vt[-k:] / scale)
-    both = np.array(rows)
+    both = fitted_rows(equations, frequency_hz, y, k)
     size = n + k + 2
     g, c = np.zeros((size, size)), np.zeros((size, size))
     g[: n + k, : n + k + 1], c[: n + k, : n + k] = both[:, : n + k + 1], both[:, n + k + 1 :]
-    g[n + k, n + k] = STATE_SIEMENS
-    flat = x.reshape(-1, n + k)
-    told = delay.control[at].reshape(-1)
-    g[-1, : n + k] = -STATE_SIEMENS * np.linalg.lstsq(_parts(flat), _parts(told), rcond=None)[0]
+    g[-2, -2] = STATE_SIEMENS
+    told, by = _real(delay.control[at].reshape(-1)), _real(x.reshape(-1, n + k))
+    g[-1, : n + k] = -STATE_SIEMENS * np.linalg.lstsq(by, told, rcond=None)[0]
     g[-1, -1] = STATE_SIEMENS
-    if k:
-        own = slice(n, n + k)
-        mix = STATE_SIEMENS * np.linalg.inv(g[own, own])
-        g[own], c[own] = mix @ g[own], mix @ c[own]
-        rows_in, columns_in = np.eye(size), np.eye(size)
-        rows_in[:n, own] = -g[:n, own] / STATE_SIEMENS
-        columns_in[own, :n] = -g[own, :n] / STATE_SIEMENS
-        g, c = rows_in @ g @ columns_in, rows_in @ c @ columns_in
-        g[:n, own], g[own, :n], g[own, own] = 0.0, 0.0, STATE_SIEMENS * np.eye(k)
-    return Fit(n, g, c, 0.0)
+    return Fit(n, *rest_apart(g, c, slice(n, n + k)), 0.0)
 
 
-def _parts(array: Complex) -> Real:
+def _real(array: Complex) -> Real:
+    """Give the real parts and, behind them, the imaginary ones."""
     return np.concatenate([array.real, array.imag])
 
 
 def _admittance(fit: Fit, delay: Delay, frequency_hz: Real) -> Complex:
     """Give Y at the terminals with the delay in place, S (n_freq, n_terminals, n_terminals)."""
-    n = fit.terminals
     y = fit.conductance + 2j * np.pi * frequency_hz[:, None, None] * fit.capacitance
     y[:, -2, -1] -= STATE_SIEMENS * delay.factor(frequency_hz)
-    return np.asarray(y[:, :n, :n] - y[:, :n, n:] @ np.linalg.solve(y[:, n:, n:], y[:, n:, :n]))
+    return at_terminals(y, fit.terminals)

@@ -14,6 +14,9 @@ from tauledger.circuit import Circuit, Element, Model
 from tauledger.devices.parts import Part
 from tauledger.solution import Bias, Isolation, Observation
 
+# Letters of devices that may have nodes of their own behind series resistances.
+WITH_INNER_NODES = frozenset("QDJMZ")
+
 
 class Transconductor(Struct, frozen=True):
     """The hand model of one transistor: a current gm·v(control, common) from output to common, with r_pi and r_o.

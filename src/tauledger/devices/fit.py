@@ -18,8 +18,12 @@ Regelungstechnik 14, 1966 (the rank of the data is the number of states).
 
 from __future__ import annotations
 
+from collections.abc import Callable
+from functools import partial
+
 import numpy as np
 from msgspec import Struct
+from msgspec.structs import replace
 from numpy.typing import NDArray
 
 from tauledger.errors import ElementError
@@ -27,6 +31,7 @@ from tauledger.solution import Samples
 
 Real = NDArray[np.float64]
 Complex = NDArray[np.complex128]
+Index = NDArray[np.intp]
 
 # An inner node that moves less than this many volt per volt is at rest. Some models have nodes that stand for charges
 # or currents and move by 1e-13; they are looked at only where the fit does not do without.
@@ -60,15 +65,19 @@ class Fit(Struct, frozen=True):
 
     def admittance(self, frequency_hz: Real) -> Complex:
         """Give Y at the terminals at every frequency (k,) in Hz, (k, n_terminals, n_terminals), S."""
-        n = self.terminals
         y = self.conductance + 2j * np.pi * np.asarray(frequency_hz)[:, None, None] * self.capacitance
-        inner = np.linalg.solve(y[:, n:, n:], y[:, n:, :n])
-        return np.asarray(y[:, :n, :n] - y[:, :n, n:] @ inner, dtype=np.complex128)
+        return at_terminals(y, self.terminals)
 
     def at_rest(self) -> tuple[Real, Real]:
         """Give the terminals' Y = G₀ + s·C₀ + … near s = 0: G₀ in S and C₀ in F, (n_terminals, n_terminals)."""
         n = self.terminals
         return self.conductance[:n, :n], self.capacitance[:n, :n]
+
+
+def at_terminals(y: Complex, n_terminals: int) -> Complex:
+    """Give Y at the terminals alone, S (k, n_terminals, n_terminals), of Y over terminals and states, (k, n, n)."""
+    n = n_terminals
+    return np.asarray(y[:, :n, :n] - y[:, :n, n:] @ np.linalg.solve(y[:, n:, n:], y[:, n:, :n]), dtype=np.complex128)
 
 
 def frequencies() -> tuple[float, ...]:
@@ -82,41 +91,46 @@ def fit(samples: Samples) -> Fit:
 
     Raises ElementError where no such matrices describe it: delays, noise, or lines inside.
     """
+    y, frequency = samples.admittance, samples.frequency_hz
+    return first_accepted(samples, lambda z, at: _fit(frequency[at], y[at], z[at]), Fit.admittance)
+
+
+def first_accepted(
+    samples: Samples, attempt: Callable[[Complex, Index], Fit], answer: Callable[[Fit, Real], Complex]
+) -> Fit:
+    """Give the first fit whose check is passed, states that move less and less taken into it.
+
+    attempt: fits the states (n_freq, n_states, n_terminals) at some of the frequencies, by place. answer: Y of a fit at
+    frequencies (k,) in Hz, S (k, n_terminals, n_terminals).
+    Raises ElementError where none is passed.
+    """
     worst = np.inf
     for floor in AT_REST:
-        found = _checked(samples, states(samples, floor))
+        found = _checked(samples, partial(attempt, states(samples, floor)), answer)
         if found.error <= ACCEPTED:
             return found
         worst = min(worst, found.error)
-    raise refused(samples.element, worst)
-
-
-def refused(element: str, worst: float) -> ElementError:
-    """Make the error for an instance that no fit describes; worst: the smallest error that was reached."""
-    return ElementError(
-        element,
-        f"the small-signal behaviour of {element} could not be fitted within {ACCEPTED:.0e} (error {worst:.1e}): no "
-        "conductances and capacitances describe what ngspice says of it",
+    raise ElementError(
+        samples.element,
+        f"the small-signal behaviour of {samples.element} could not be fitted within {ACCEPTED:.0e} (error "
+        f"{worst:.1e}): no conductances and capacitances describe what ngspice says of it",
         "leave out what in its model is a delay or depends on the frequency, or use a simpler level",
     )
 
 
-def _checked(samples: Samples, z: Complex) -> Fit:
+def _checked(samples: Samples, attempt: Callable[[Index], Fit], answer: Callable[[Fit, Real], Complex]) -> Fit:
     """Fit, and compare with every frequency; a second fit that leaves out every second frequency with those."""
     y, frequency = samples.admittance, samples.frequency_hz
-    every, half = np.arange(len(frequency)), np.arange(0, len(frequency), 2)
-    left_out = every[1::2]
-    checked = _fit(frequency[half], y[half], z[half])
-    whole = _fit(frequency, y, z)
+    every = np.arange(len(frequency))
+    whole, checked = attempt(every), attempt(every[::2])
     size = np.abs(y).max(axis=(1, 2))
     # a transistor that is off has 1e-12 S behind 1 S: below a millionth of the largest Y ngspice's own rounding is seen
     size = np.maximum(size, ROUNDING * size.max()).clip(min=np.finfo(float).tiny)
     errors = [
-        np.abs(tried.admittance(frequency[at]) - y[at]).max(axis=(1, 2)) / size[at]
-        for tried, at in ((checked, left_out), (whole, every))
+        np.abs(answer(tried, frequency[at]) - y[at]).max(axis=(1, 2)) / size[at]
+        for tried, at in ((checked, every[1::2]), (whole, every))
     ]
-    worst = float(max(error.max() for error in errors))
-    return Fit(whole.terminals, whole.conductance, whole.capacitance, worst)
+    return replace(whole, error=float(max(error.max() for error in errors)))
 
 
 def states(samples: Samples, at_rest: float = AT_REST[0]) -> Complex:
@@ -145,34 +159,51 @@ def _fit(frequency_hz: Real, y: Complex, z: Complex) -> Fit:
     # one equation per frequency and driven terminal, (n_freq, n_terminals, n + k)
     x = np.concatenate([terminals, z], axis=1).transpose(0, 2, 1)
     equations = np.concatenate([x, 1j * omega[:, None, None] * x], axis=2)
-    rows = [least_squares(equations, y[:, i, :]) for i in range(n)]
-    if k:
-        weighted, scale = scaled(equations, 1.0 / (1.0 + frequency_hz / HIGH_HZ))
-        _, _, vt = np.linalg.svd(weighted, full_matrices=False)
-        rows += list(vt[-k:] / scale)
-    both = np.array(rows)
-    g, c = both[:, : n + k], both[:, n + k :]
-    if k:
-        mix = STATE_SIEMENS * np.linalg.inv(g[n:, n:])
-        g[n:], c[n:] = mix @ g[n:], mix @ c[n:]
-        rows_in, columns_in = np.eye(n + k), np.eye(n + k)
-        rows_in[:n, n:] = -g[:n, n:] / STATE_SIEMENS
-        columns_in[n:, :n] = -g[n:, :n] / STATE_SIEMENS
-        g, c = rows_in @ g @ columns_in, rows_in @ c @ columns_in
-        g[:n, n:], g[n:, :n], g[n:, n:] = 0.0, 0.0, STATE_SIEMENS * np.eye(k)
+    both = fitted_rows(equations, frequency_hz, y, k)
+    g, c = rest_apart(both[:, : n + k], both[:, n + k :], slice(n, n + k))
     return Fit(n, g, c, 0.0)
 
 
-def least_squares(equations: Complex, current: Complex) -> Real:
+def fitted_rows(equations: Complex, frequency_hz: Real, y: Complex, n_states: int) -> Real:
+    """Give the rows (n_terminals + n_states, m) of all relations that hold at every frequency (n_freq,) in Hz.
+
+    equations: (n_freq, n_terminals, m), for each driven terminal what the m columns are multiplied by. y: currents of
+    the terminals, S (n_freq, n_terminals, n_terminals), right sides of the first rows; those of the states are 0.
+    """
+    rows = [_least_squares(equations, y[:, i, :]) for i in range(y.shape[1])]
+    if n_states:
+        weighted, scale = _scaled(equations, 1.0 / (1.0 + frequency_hz / HIGH_HZ))
+        _, _, vt = np.linalg.svd(weighted, full_matrices=False)
+        rows += list(vt[-n_states:] / scale)
+    return np.array(rows)
+
+
+def rest_apart(g: Real, c: Real, own: slice) -> tuple[Real, Real]:
+    """Mix the rows and columns `own` of the states so that G has no entries between them and the terminals before."""
+    n, k = own.start, own.stop - own.start
+    if not k:
+        return g, c
+    g, c = g.copy(), c.copy()
+    mix = STATE_SIEMENS * np.linalg.inv(g[own, own])
+    g[own], c[own] = mix @ g[own], mix @ c[own]
+    rows_in, columns_in = np.eye(len(g)), np.eye(len(g))
+    rows_in[:n, own] = -g[:n, own] / STATE_SIEMENS
+    columns_in[own, :n] = -g[own, :n] / STATE_SIEMENS
+    g, c = rows_in @ g @ columns_in, rows_in @ c @ columns_in
+    g[:n, own], g[own, :n], g[own, own] = 0.0, 0.0, STATE_SIEMENS * np.eye(k)
+    return g, c
+
+
+def _least_squares(equations: Complex, current: Complex) -> Real:
     """Give (g, c) of one terminal's row; every frequency counts alike, relative to its own largest current."""
     weight = 1.0 / np.abs(current).max(axis=1).clip(min=1e-30)
-    weighted, scale = scaled(equations, weight)
+    weighted, scale = _scaled(equations, weight)
     right = (current * weight[:, None]).reshape(-1)
     found = np.linalg.lstsq(weighted, np.concatenate([right.real, right.imag]), rcond=1e-15)[0]
     return np.asarray(found / scale, dtype=float)
 
 
-def scaled(equations: Complex, weight: Real) -> tuple[Real, Real]:
+def _scaled(equations: Complex, weight: Real) -> tuple[Real, Real]:
     """Give the equations weighted, real parts above imaginary ones, with columns of norm 1, and those norms."""
     flat = (equations * weight[:, None, None]).reshape(-1, equations.shape[2])
     real = np.concatenate([flat.real, flat.imag])

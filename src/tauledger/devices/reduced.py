@@ -3,9 +3,10 @@
 The elements are those of the terminals at rest, Y(s) = G₀ + s·C₀ + …: the hybrid-π of a bipolar transistor, g_μ =
 −G_bc, g_π = −G_be, gm = G_cb − G_bc, C_μ = −C_bc, C_π = −C_be; of a field-effect transistor gm = G_dg, g_mb = G_db,
 C_gs = −C_gs of the charge matrix and so on. The remainder (a block) is the fit less these elements, so that both
-together are the instance exactly: series resistances, transit times, and charge that is not reciprocal (C_cb ≠ C_bc)
-are in it. All this is told apart between the instance's own terminals; only then `placed` puts it at the circuit's
-nodes, where two of them may be one: g_o of a transistor whose body is tied to its source is still g_o.
+together are the instance exactly: transit times, charge that is not reciprocal (C_cb ≠ C_bc), and series resistances
+that `extrinsic` left inside are in it. All this is told apart between the instance's own terminals; only then `placed`
+puts it at the circuit's nodes, where two of them may be one: g_o of a transistor whose body is tied to its source is
+still g_o.
 
 Sources: Gray, Hurst, Lewis and Meyer, "Analysis and Design of Analog Integrated Circuits", 5th ed., 2009, section 1.4
 (hybrid-π); Tsividis and McAndrew, "Operation and Modeling of the MOS Transistor", 3rd ed., 2011, chapters 6 and 7

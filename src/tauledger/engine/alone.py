@@ -27,6 +27,7 @@ from tauledger.circuit import (
     fold,
     terminals_of,
 )
+from tauledger.devices.catalogue import shunt_siemens
 from tauledger.engine.deck import Deck, write_deck
 from tauledger.engine.grid import GRID_TOLERANCE, plan
 from tauledger.engine.protocol import Message
@@ -184,12 +185,10 @@ def answered(asked: Bench, answer: Message) -> list[Samples]:
         column = [np.concatenate([_column(run, k) for run in runs]) for k in range(sum(counts))]
         columns.append(np.array(column, dtype=complex))
     found: list[Samples] = []
-    shunt_ohm = dict(asked.circuit.options).get("rshunt")
-    shunt_siemens = 0.0 if shunt_ohm is None else 1.0 / shunt_ohm
     first = 0
     for instance, count in zip(asked.instances, counts, strict=True):
         own = [column[first : first + count] for column in columns[: len(instance.sources)]]
-        found.append(samples(instance, frequency, own, shunt_siemens))
+        found.append(samples(instance, frequency, own, shunt_siemens(asked.circuit)))
         first += count
     return found
 
@@ -209,13 +208,13 @@ def _column(run: Message, k: int) -> Complex:
 
 
 def samples(
-    instance: Alone, frequency_hz: NDArray[np.float64], answers: Sequence[Complex], shunt_siemens: float = 0.0
+    instance: Alone, frequency_hz: NDArray[np.float64], answers: Sequence[Complex], shunt: float = 0.0
 ) -> Samples:
     """Put the answers of one instance to unit AC together.
 
     answers: for each driven terminal, then each forced current, the currents through the holders (from the terminal
     into ground) and the inner nodes' voltages, (n_holders + n_inner, n_freq); an inner node that does not exist is NaN.
-    shunt_siemens: what stands from every node to ground.
+    shunt: what stands from every node to ground, S.
     """
     isolation, n = instance.isolation, len(instance.terminals)
     driven = np.stack(answers, axis=-1).transpose(1, 0, 2)
@@ -232,7 +231,7 @@ def samples(
     admittance[:, :, places] = -driven[:, :n, :count]
     for place in {*instance.held} & {*places}:
         # what `.options rshunt` puts at the terminal is no part of the instance; at its inner nodes it is
-        admittance[:, place, place] -= shunt_siemens
+        admittance[:, place, place] -= shunt
     inner_gain[:, :, places] = driven[:, [n + k for k in exists], :count]
     return Samples(
         element=isolation.element,

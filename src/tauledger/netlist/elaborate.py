@@ -12,6 +12,7 @@ from msgspec import Struct
 from msgspec.structs import replace
 
 from tauledger.circuit import ADDED, GROUND, NO_CHANGE, Change, Circuit, Element, Port, ReadingNote, fold
+from tauledger.devices.family import WITH_INNER_NODES
 from tauledger.errors import Diagnostic, ElementError, InputError, NetlistError
 from tauledger.netlist.conditions import counts, define_all
 from tauledger.netlist.diagnostics import Site, gather, nearest, visible
@@ -294,7 +295,7 @@ def _add_shunts(netlist: Netlist, draft: Draft, scope: Scope, settings: dict[str
         if option == "rshunt" and inside:
             left.append(option)
             says += f"; ngspice puts one to every node inside a device as well ({visible(inside[0].name)}), as here"
-            unknown = [element.name for element in inside if element.letter not in "QDJMZ"]
+            unknown = [element.name for element in inside if element.letter not in WITH_INNER_NODES]
             if unknown:
                 fault = site.fault(
                     setting,
@@ -338,7 +339,7 @@ def _has_inner_nodes(draft: Draft, element: Element) -> bool:
     if element.letter in "TO" or (element.letter in PASSIVES and element.formula is not None):
         return True
     model = draft.models.get(fold(element.model))
-    if model is None or element.letter not in "QDJMZ":
+    if model is None or element.letter not in WITH_INNER_NODES:
         return False
     return model.level not in SIMPLE_LEVELS or any(model.parameter(name, 0.0) for name in INNER_RESISTANCES)
 
