@@ -24,7 +24,7 @@ from tauledger.network.agreement import Agreement, agreement
 from tauledger.network.assemble import Network
 from tauledger.network.bands import Bands, classify
 from tauledger.network.edges import Edges, find_edges
-from tauledger.network.midband import MidBand, find_midband, frequency_range
+from tauledger.network.midband import HIGHEST_HZ, MidBand, find_midband, frequency_range
 from tauledger.network.poles import PoleZeroMap, find_poles
 from tauledger.network.recompute import EdgeFrequencies, edge_frequencies, scaled
 from tauledger.network.solve import Complex, response
@@ -33,8 +33,6 @@ from tauledger.simulated import Simulated, simulate
 from tauledger.solution import Bias
 
 POINTS_PER_DECADE = 40
-# Beyond this only the rounding of ngspice is left to see; f_H itself may lie higher.
-HIGHEST_HZ = 1e12
 # Agreement above this: the rebuilt network is not the simulated circuit, and nothing that rests on it is given.
 DISAGREES = 1e-3
 

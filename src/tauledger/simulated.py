@@ -13,13 +13,10 @@ from msgspec import Struct
 from msgspec.structs import replace
 from numpy.typing import NDArray
 
-from tauledger.network.midband import MidBand
+from tauledger.network.edges import HALF_POWER
+from tauledger.network.midband import FLAT_SLOPE, PLATEAU_DECADES, MidBand
 from tauledger.solution import Sweep
 
-HALF_POWER = 1.0 / np.sqrt(2.0)
-# 2 dB per decade over half a decade, as for the network.
-FLAT_SLOPE = 0.1
-PLATEAU_DECADES = 0.5
 REFINING_POINTS = 33
 REFINING_ROUNDS = 2
 

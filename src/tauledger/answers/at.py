@@ -7,20 +7,18 @@ import math
 import numpy as np
 
 from tauledger.answers.answer import Subject
-from tauledger.answers.elements import elements
+from tauledger.answers.elements import elements, size, worth_a_row
 from tauledger.answers.simulated_unity import midband_phasor
+from tauledger.compose.helps import LESS
 from tauledger.errors import InputError
+from tauledger.network.midband import HIGHEST_HZ
 from tauledger.network.solve import response
 from tauledger.network.targets import PERCENT, gain_moves
-from tauledger.numbers import HIGHEST_HZ, Numbers
+from tauledger.numbers import Numbers
 from tauledger.quantity import engineering
 from tauledger.record import AtElement, AtFacts
 from tauledger.simulated import Simulated
 
-# By 10 % of an element: below these nobody looks.
-WORTH_A_FRACTION = 5e-3
-WORTH_DEGREES = 0.1
-DEGREE = 0.01
 # How many frequencies at most say how often lines have turned the phase.
 MOST_FOLLOWED = 100_000
 
@@ -108,9 +106,6 @@ def _elements(numbers: Numbers, hz: float) -> tuple[AtElement, ...]:
         )
         for one in elements(numbers)
     ]
-    # 10 % of it
-    rows = [
-        row for row in rows if 0.1 * abs(row.gain) >= WORTH_A_FRACTION or 10.0 * abs(row.phase_deg) >= WORTH_DEGREES
-    ]
-    rows.sort(key=lambda row: -max(abs(row.gain), abs(row.phase_deg) * DEGREE / PERCENT))
+    rows = [row for row in rows if worth_a_row(LESS * row.gain, LESS / PERCENT * row.phase_deg)]
+    rows.sort(key=lambda row: -size(row.gain, row.phase_deg / PERCENT))
     return tuple(rows)

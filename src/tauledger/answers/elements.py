@@ -1,13 +1,19 @@
-"""The elements of a circuit as a reader names them: cards, the capacitances of devices and their gm."""
+"""The elements of a circuit as a reader names them, and which effects of them are worth a row."""
 
 from __future__ import annotations
 
 from msgspec import Struct
 
-from tauledger.compose.helps import UNITS, is_card, is_element, moves_bias
+from tauledger.compose.helps import LESS, UNITS, is_card, is_element, moves_bias
 from tauledger.numbers import Numbers
 
-LESS = 0.1
+# Changes by 10 % of an element, or by 1 pF: below these nobody looks.
+WORTH_A_FRACTION = 5e-3
+WORTH_DEGREES = 0.1
+# A degree ranks like a per cent.
+DEGREE = 0.01
+# So many rows, the largest, are computed again as proof of the first-order effects.
+PROVED = 2
 
 
 class Element(Struct, frozen=True):
@@ -30,6 +36,16 @@ class Element(Struct, frozen=True):
     def ten_percent_less(self) -> float:
         """Factor on the part's value that is 10 % less of the element."""
         return float((1.0 - LESS) ** self.sign)
+
+
+def worth_a_row(fraction: float, degrees: float) -> bool:
+    """Whether a change, of gain or f_u as a fraction and of phase or margin in degrees, is large enough to be told."""
+    return abs(fraction) >= WORTH_A_FRACTION or abs(degrees) >= WORTH_DEGREES
+
+
+def size(fraction: float, degrees: float) -> float:
+    """Rank a change, of gain or f_u as a fraction and of phase or margin in degrees, on one scale."""
+    return max(abs(fraction), DEGREE * abs(degrees))
 
 
 def elements(numbers: Numbers) -> tuple[Element, ...]:

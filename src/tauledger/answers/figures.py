@@ -27,6 +27,7 @@ RunSweep = Callable[[NDArray[np.float64]], Sweep]
 AROUND = (1e-3, 1e-2, 1e-1)
 FAR_BELOW = 1e-6
 QUANTITIES = {"margin": "°", "gain_margin": "dB", "f_u": "Hz", "f_h": "Hz", "f_l": "Hz"}
+MARGINS = ("margin", "gain_margin")
 
 
 class Figures(Struct, frozen=True):
@@ -37,7 +38,6 @@ class Figures(Struct, frozen=True):
     """
 
     reference_hz: float
-
     f_unity_hz: float | None
     phase_margin_deg: float | None
     gain_margin_db: float | None
@@ -55,7 +55,7 @@ class Figures(Struct, frozen=True):
         if not self.stable:
             return None
         unending = {"gain_margin": math.inf, "f_h": math.inf, "f_l": 0.0}
-        if quantity in ("margin", "gain_margin", "f_u") and self.f_unity_hz is None:
+        if quantity in (*MARGINS, "f_u") and self.f_unity_hz is None:
             return None
         found = {
             "margin": self.phase_margin_deg,
@@ -127,7 +127,10 @@ def simulated_figure(run: RunSweep, quantity: str, exact: Figures) -> float | No
 
 
 def _crossing(quantity: str, frequency_hz: NDArray[np.float64], h: NDArray[np.complex128], gain: float) -> float | None:
-    """Interpolate on ln f between three points; h is |H| over mid-band, gain the latter."""
+    """Interpolate on ln f between three points, frequency (3,) and h (3,); None where nothing is crossed there.
+
+    h: H over its mid-band value. gain: the size of that value.
+    """
     size, place = np.log(np.abs(h)), np.log(frequency_hz)
     phase = np.unwrap(np.angle(h))
     level = {"f_h": math.log(HALF_POWER), "f_l": math.log(HALF_POWER)}.get(quantity, -math.log(gain))

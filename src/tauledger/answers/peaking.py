@@ -8,7 +8,8 @@ import numpy as np
 from msgspec.structs import replace
 
 from tauledger.answers.answer import Subject
-from tauledger.answers.elements import Element, elements
+from tauledger.answers.elements import PROVED, Element, elements
+from tauledger.compose.helps import LESS
 from tauledger.network.edges import Edge, at_same_frequency, find_edges
 from tauledger.network.recompute import scaled
 from tauledger.network.targets import PERCENT, peaking_moves
@@ -19,7 +20,6 @@ from tauledger.simulated import RunSweep, Simulated
 # Below this there is nothing to see, nor by 10 % of an element.
 WORTH_TELLING_DB = 0.01
 WORTH_A_ROW_DB = 0.005
-RERUN = 2
 REFINING_POINTS = 33
 REFINING_ROUNDS = 3
 
@@ -70,10 +70,10 @@ def _simulated_peak(run: RunSweep, simulated: Simulated, near_hz: float) -> tupl
 
 def _elements(numbers: Numbers, edge: str, moves: Mapping[str, float]) -> tuple[PeakElement, ...]:
     rows = [(one, _element(one, moves[one.name])) for one in elements(numbers)]
-    rows = [pair for pair in rows if 10.0 * abs(pair[1].peaking_db) >= WORTH_A_ROW_DB]
+    rows = [pair for pair in rows if LESS / PERCENT * abs(pair[1].peaking_db) >= WORTH_A_ROW_DB]
     rows.sort(key=lambda pair: -abs(pair[1].peaking_db))
-    proven = [replace(row, rerun_db=_again(numbers, edge, one)) for one, row in rows[:RERUN]]
-    return (*proven, *(row for _, row in rows[RERUN:]))
+    proven = [replace(row, rerun_db=_again(numbers, edge, one)) for one, row in rows[:PROVED]]
+    return (*proven, *(row for _, row in rows[PROVED:]))
 
 
 def _element(one: Element, move: float) -> PeakElement:

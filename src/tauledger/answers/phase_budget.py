@@ -6,6 +6,7 @@ import math
 from collections.abc import Mapping, Sequence
 
 from msgspec import Struct
+from msgspec.structs import replace
 
 from tauledger.answers.answer import Subject
 from tauledger.hand.compensated import CompensatedStage, dominant_hz, find_compensated_stage
@@ -26,13 +27,13 @@ from tauledger.hand.poles import HandPole
 from tauledger.hand.roots import ExactRoot, HandRoot, belonging, hand_roots
 from tauledger.network.identities import check
 from tauledger.network.phase import PhaseUse, PhaseUsed, phase_identities, phase_used
+from tauledger.network.unity import HALF_TURN_DEG
 from tauledger.numbers import Numbers
 from tauledger.quantity import engineering
 from tauledger.record import PhaseBudget, PhaseRow, Review, UnityStep
 
 SEEN_DEG = 1.0
 WITH_A_FORMULA_DEG = 0.1
-HALF_TURN_DEG = 180.0
 SAME = 0.02
 # Beyond a gain of this from the stage's output on, another stage follows, and its poles are not those of paper here.
 FOLLOWED_BY = (0.3, 2.1)
@@ -150,12 +151,9 @@ def _with_formula(one: PhaseUse, root: ExactRoot, by_hand: tuple[HandRoot, ...],
     hand_hz = first.hz if alone else math.prod(abs(root.hz) for root in by_hand) ** (1.0 / len(by_hand))
     poles = [root.hz for root in by_hand if root.kind == "pole"]
     zeros = [root.hz for root in by_hand if root.kind == "zero"]
-    return PhaseRow(
+    return replace(
+        bare,
         name=first.formula.name if alone else bare.name,
-        kind=bare.kind,
-        real_hz=bare.real_hz,
-        imag_hz=bare.imag_hz,
-        used_deg=bare.used_deg,
         hand_formula=first.formula.written if alone else f"√({' · '.join(root.formula.name for root in by_hand)})",
         hand_values="; ".join(root.values for root in by_hand),
         hand_hz=hand_hz,
@@ -165,14 +163,9 @@ def _with_formula(one: PhaseUse, root: ExactRoot, by_hand: tuple[HandRoot, ...],
 
 
 def _of_two_coefficients(one: PhaseUse, root: ExactRoot, by_hand: HandPole, mid_hz: float, hz: float) -> PhaseRow:
-    bare = _bare(one, root)
     assert by_hand.hz is not None
-    return PhaseRow(
-        name=bare.name,
-        kind=bare.kind,
-        real_hz=bare.real_hz,
-        imag_hz=bare.imag_hz,
-        used_deg=bare.used_deg,
+    return replace(
+        _bare(one, root),
         # "1/(2π·b1), -20 % off": how far it is off has its own column
         hand_formula=by_hand.formula.partition(", ")[0],
         hand_hz=by_hand.hz,

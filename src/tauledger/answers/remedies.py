@@ -13,7 +13,7 @@ import numpy as np
 from msgspec import Struct
 
 from tauledger.answers.elements import Element, elements
-from tauledger.answers.figures import Figures, figures_of
+from tauledger.answers.figures import MARGINS, Figures, figures_of
 from tauledger.errors import InputError, NetworkError
 from tauledger.hand.compensated import CompensatedStage
 from tauledger.network.altered import AddedCapacitor, SeriesResistor, altered
@@ -81,7 +81,7 @@ def shortfall(quantity: str, figure: float | None, wanted: float) -> float:
     """
     if figure is None:
         return math.inf
-    if quantity in ("margin", "gain_margin"):
+    if quantity in MARGINS:
         return wanted - figure
     if figure in (0.0, math.inf):
         return -math.inf
@@ -100,7 +100,7 @@ def trials(quantity: str, found: Review, numbers: Numbers, stage: CompensatedSta
     ranked = sorted((one for one in known.values() if effect.get(one.name)), key=lambda one: -abs(effect[one.name]))
     twin = _twins(found, ranked)
     leading = [one for one in ranked if one.name not in twin or ranked.index(one) < ranked.index(twin[one.name])]
-    at_stage = list(_of_stage(stage, known, numbers)) if stage is not None and quantity.endswith("margin") else []
+    at_stage = list(_of_stage(stage, known, numbers)) if stage is not None and quantity in MARGINS else []
     if at_stage:
         yield from at_stage
     else:
@@ -179,12 +179,12 @@ def _solved(
 
 
 def _near(quantity: str, wanted: float) -> float:
-    return PROVED * (wanted if quantity.endswith("margin") else 1.0)
+    return PROVED * (wanted if quantity in MARGINS else 1.0)
 
 
 def _aimed(quantity: str, aim: float, left: float) -> float:
     """Aim by so much beyond as the figure, followed, fell short of what a search of the whole response finds."""
-    if quantity.endswith("margin"):
+    if quantity in MARGINS:
         return aim + left
     return aim * math.exp(-left if quantity in SMALLER_IS_BETTER else left)
 

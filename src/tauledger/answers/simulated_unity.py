@@ -9,12 +9,13 @@ from msgspec import Struct
 from numpy.typing import NDArray
 
 from tauledger.engine.grid import decades
+from tauledger.network.midband import HIGHEST_HZ
 from tauledger.network.solve import Complex, Real
-from tauledger.numbers import HIGHEST_HZ, POINTS_PER_DECADE
+from tauledger.network.unity import HALF_TURN_DEG
+from tauledger.numbers import POINTS_PER_DECADE
 from tauledger.simulated import RunSweep, Simulated
 from tauledger.solution import Sweep
 
-HALF_TURN_DEG = 180.0
 BEYOND = 1.1
 # ngspice keeps 1e-12; a miss this small moves no digit that is shown.
 SMALL = 1e-9

@@ -14,6 +14,7 @@ from tauledger.record import Review, UnityFacts
 
 # From here on an amplifier is meant to be closed around: at less, unity gain is what lies beyond the band.
 WORTH_A_SECTION = 10.0
+LEFT_OUT = "leave it out: who sets the band edges is in the review"
 
 
 def unity_facts(found: Review, subject: Subject, *, asked: bool) -> UnityFacts | None:
@@ -51,10 +52,10 @@ def _no_unity_gain(numbers: Numbers, midband: MidBand) -> InputError:
         both = "drive and output must both be voltages or both currents"
         return InputError("--unity: the response is no plain ratio", both)
     if abs(midband.gain) <= 1.0:
-        return InputError(f"--unity: the gain at mid-band is {abs(midband.gain):.4g}, no more than 1")
+        return InputError(f"--unity: the gain at mid-band is {abs(midband.gain):.4g}, no more than 1", LEFT_OUT)
     if not numbers.poles.stable:
         return InputError("--unity: the circuit is unstable as it is, no margin means anything", "open its loop first")
-    return InputError("--unity: the gain does not fall to 1 beyond mid-band")
+    return InputError("--unity: the gain does not fall to 1 beyond mid-band", LEFT_OUT)
 
 
 def _is_open(midband: MidBand) -> bool:

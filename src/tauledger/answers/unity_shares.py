@@ -7,7 +7,8 @@ from collections.abc import Mapping
 from msgspec import Struct
 from msgspec.structs import replace
 
-from tauledger.answers.elements import Element, elements
+from tauledger.answers.elements import PROVED, Element, elements, size, worth_a_row
+from tauledger.compose.helps import LESS
 from tauledger.network.identities import check
 from tauledger.network.recompute import scaled
 from tauledger.network.targets import (
@@ -22,13 +23,7 @@ from tauledger.network.unity import Unity
 from tauledger.numbers import Numbers
 from tauledger.record import Review, UnityElement, UnityNode
 
-PROBE = 1e-12
-RERUN = 2
-# Changes by 10 % of an element, or by 1 pF: below these nobody looks.
-WORTH_A_FRACTION = 5e-3
-WORTH_DEGREES = 0.1
-# A degree of margin counts like a per cent of f_u.
-DEGREE = 0.01
+PROBE_F = 1e-12
 MOST_NODES = 12
 
 
@@ -51,25 +46,19 @@ def unity_shares(found: Review, numbers: Numbers, unity: Unity) -> UnityShares:
     return UnityShares(_elements(numbers, unity, moves.parts), _nodes(found, numbers, unity, moves.nodes))
 
 
-def _size(f_unity: float, margin_deg: float) -> float:
-    """Rank a change of f_u (a fraction) and one of the margin on one scale."""
-    return max(abs(f_unity), DEGREE * abs(margin_deg))
-
-
 def _elements(numbers: Numbers, unity: Unity, moves: Mapping[str, UnityMove]) -> tuple[UnityElement, ...]:
     rows = []
     for one in elements(numbers):
         row = _element(one, moves[one.name])
-        # 10 % less of it
-        if abs(row.f_unity) >= 10.0 * WORTH_A_FRACTION or abs(row.phase_margin_deg) >= WORTH_DEGREES / 10.0:
+        if worth_a_row(LESS * row.f_unity, LESS / PERCENT * row.phase_margin_deg):
             rows.append((one, row))
-    rows.sort(key=lambda pair: -_size(pair[1].f_unity, pair[1].phase_margin_deg / PERCENT))
+    rows.sort(key=lambda pair: -size(pair[1].f_unity, pair[1].phase_margin_deg / PERCENT))
     proven = []
-    for one, row in rows[:RERUN]:
+    for one, row in rows[:PROVED]:
         again = follow_unity(scaled(numbers.network, {one.name: one.ten_percent_less}), numbers.midband, unity)
         hz, margin = (again.hz, again.phase_margin_deg) if again is not None else (None, None)
         proven.append(replace(row, f_unity_rerun_hz=hz, phase_margin_rerun_deg=margin))
-    return (*proven, *(row for _, row in rows[RERUN:]))
+    return (*proven, *(row for _, row in rows[PROVED:]))
 
 
 def _element(one: Element, move: UnityMove) -> UnityElement:
@@ -98,15 +87,12 @@ def _nodes(found: Review, numbers: Numbers, unity: Unity, moves: Mapping[str, Un
         UnityNode(name, title, unity.hz * moves[name].f_unity, moves[name].phase_margin_deg, None, None)
         for name, title in titles.items()
     ]
-    rows = [
-        row
-        for row in rows
-        if PROBE * abs(row.per_farad) >= WORTH_A_FRACTION * unity.hz or PROBE * abs(row.margin_slope) >= WORTH_DEGREES
-    ]
-    rows.sort(key=lambda row: -_size(PROBE * row.per_farad / unity.hz, PROBE * row.margin_slope))
+    changes = {row.node: (PROBE_F * row.per_farad / unity.hz, PROBE_F * row.margin_slope) for row in rows}
+    rows = [row for row in rows if worth_a_row(*changes[row.node])]
+    rows.sort(key=lambda row: -size(*changes[row.node]))
     told = []
     for row in rows[:MOST_NODES]:
-        again = follow_unity(with_capacitance(numbers.network, row.node, PROBE), numbers.midband, unity)
+        again = follow_unity(with_capacitance(numbers.network, row.node, PROBE_F), numbers.midband, unity)
         hz, margin = (again.hz, again.phase_margin_deg) if again is not None else (None, None)
         told.append(replace(row, one_picofarad_hz=hz, one_picofarad_margin_deg=margin))
     return tuple(told)

@@ -15,6 +15,8 @@ from tauledger.asked import Want
 from tauledger.circuit import Circuit
 from tauledger.engine.client import Engine
 from tauledger.errors import EngineError, InputError
+from tauledger.network.unity import is_ratio
+from tauledger.numbers import Numbers
 from tauledger.record import Remedy, Review, WantChange, WantFacts
 
 NOT_TRUSTED = "the rebuilt network is not the simulated circuit: nothing can be worked out on it"
@@ -43,7 +45,9 @@ def want_facts(found: Review, subject: Subject, wants: tuple[Want, ...]) -> tupl
 def _answered(found: Review, subject: Subject, want: Want, now: Figures) -> WantFacts:
     figure = now.of(want.quantity)
     if figure is None:
-        raise InputError(f"--want {want.quantity}={want.value:g}: {_reason(now, found)}", _instead(now))
+        raise InputError(
+            f"--want {want.quantity}={want.value:g}: {_reason(now, found, subject.numbers)}", _instead(now)
+        )
     facts = WantFacts(
         quantity=want.quantity,
         unit=QUANTITIES[want.quantity],
@@ -60,10 +64,10 @@ def _answered(found: Review, subject: Subject, want: Want, now: Figures) -> Want
     return replace(facts, remedies=remedies, says=says)
 
 
-def _reason(now: Figures, found: Review) -> str:
+def _reason(now: Figures, found: Review, numbers: Numbers) -> str:
     if not now.stable:
         return "the circuit is not stable, and no margin or band edge means anything"
-    if found.midband.unit not in ("V/V", "A/A"):
+    if not is_ratio(numbers.network):
         return f"a gain in {found.midband.unit} does not fall to 1"
     return "the gain does not fall through 1 above mid-band"
 

@@ -16,7 +16,7 @@ from tauledger.errors import NetworkError
 from tauledger.network.assemble import Network
 from tauledger.network.recompute import without
 from tauledger.network.solve import on_axis, response, solve
-from tauledger.numbers import Numbers
+from tauledger.numbers import DISAGREES, Numbers
 from tauledger.quantity import engineering
 from tauledger.record import NoteFacts
 
@@ -24,7 +24,6 @@ PROBE_OHM = 100e6
 MOVES_NOTHING = 1e-4
 # ngspice and numpy reckon with 53 binary digits
 ROUNDING = 2.0**-53
-DISAGREES = 1e-3
 
 
 def aid_notes(numbers: Numbers) -> tuple[NoteFacts, ...]:
@@ -98,7 +97,7 @@ def _ammeters(numbers: Numbers) -> list[Element]:
 
 def _loses_all_digits(numbers: Numbers, part: Part) -> bool:
     """Whether ngspice differs, and s·C of a capacitor between two live nodes is why."""
-    if numbers.agreement is None or numbers.agreement.max_relative_error <= DISAGREES or part.kind != "capacitance":
+    if numbers.trusted or part.kind != "capacitance":
         return False
     return bool(np.isfinite(_digits_end_hz(numbers, part)))
 

@@ -24,6 +24,7 @@ CONSTANT_RANGE_HZ = (1.0, 10.0)
 NO_SIGNAL = 1e-14
 FAR_BELOW = 0.1
 FAR_BELOW_A_RESONANCE = 0.01
+# Beyond this only the rounding of ngspice is left to see; f_H itself may lie higher.
 HIGHEST_HZ = 1e12
 
 
