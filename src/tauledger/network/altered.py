@@ -45,6 +45,12 @@ def with_series(network: Network, series: SeriesResistor) -> Network:
     return assemble(tuple(parts), network.port, network.amplitudes)
 
 
+def with_capacitor(network: Network, added: AddedCapacitor) -> Network:
+    """Give the network with the capacitor between its two nodes."""
+    part = capacitance(added.name, added.plus, added.minus, added.farad)
+    return assemble((*network.parts, part), network.port, network.amplitudes)
+
+
 def altered(
     network: Network, factors: Mapping[str, float], series: SeriesResistor | None, added: AddedCapacitor | None = None
 ) -> Network:
@@ -54,6 +60,5 @@ def altered(
     """
     changed = network if series is None else with_series(network, series)
     if added is not None:
-        part = capacitance(added.name, added.plus, added.minus, added.farad)
-        changed = assemble((*changed.parts, part), changed.port, changed.amplitudes)
+        changed = with_capacitor(changed, added)
     return scaled(changed, factors) if factors else changed

@@ -1,10 +1,7 @@
 """The network solved again with parts of other value: bias and reference frequency held, the change finite.
 
-This is what "rerun" and "10 % less" mean. Scaling one part changes Y by a matrix of rank one, so all single changes
-are scanned together from the solutions of the unchanged network, and only the crossings are solved anew.
-
-Source of the rank-one formula: Sherman and Morrison, "Adjustment of an inverse matrix corresponding to a change in one
-element of a given matrix", Ann. Math. Stat. 21(1), 1950.
+This is what "rerun" and "10 % less" mean. Scaling one part changes Y by a matrix of rank one (rank_one.py), so all
+single changes are scanned together from the solutions of the unchanged network, and only the crossings are solved anew.
 """
 
 from __future__ import annotations
@@ -15,12 +12,12 @@ import numpy as np
 from msgspec import Struct
 from msgspec.structs import replace
 
-from tauledger.errors import NetworkError
 from tauledger.network.assemble import Network, assemble, without_loose_ends
 from tauledger.network.edges import HALF_POWER, Edges, at_same_frequency, crossing, first_crossings
 from tauledger.network.midband import MidBand
+from tauledger.network.rank_one import changed_response, places_of_change
 from tauledger.network.reactances import Reactances, reactances
-from tauledger.network.solve import DENSE_LIMIT, MOST_ENTRIES, Complex, Real, admittance, on_axis
+from tauledger.network.solve import Complex, Real, on_axis
 
 SCANNED_BEYOND = 10.0
 
@@ -115,21 +112,8 @@ def _window(midband: MidBand, edges: Edges) -> Real:
 def _each_response(network: Network, terms: Reactances, frequency_hz: Real, factor: float) -> Complex:
     """Give H (k, m) at every frequency with each of the m parts scaled alone."""
     s = on_axis(frequency_hz)
-    right = np.concatenate([network.drive[:, None], terms.out.astype(complex)], axis=1)
-    batch = max(1, MOST_ENTRIES // (network.size * right.shape[1])) if network.size <= DENSE_LIMIT else 1
-    rows = []
-    for first in range(0, len(s), batch):
-        at = s[first : first + batch]
-        try:
-            solved = np.linalg.solve(admittance(network, at), np.broadcast_to(right, (len(at), *right.shape)))
-        except np.linalg.LinAlgError as error:
-            raise NetworkError("the small-signal network has no unique solution") from error
-        reached = np.einsum("n,knm->km", network.output, solved)
-        controls = np.einsum("nm,kn->km", terms.control, solved[:, :, 0])
-        own = np.einsum("nm,knm->km", terms.control, solved[:, :, 1:])
-        added = at[:, None] * terms.value * (factor - 1.0)
-        rows.append(reached[:, :1] - added * reached[:, 1:] * controls / (1.0 + added * own))
-    return np.concatenate(rows)
+    places = places_of_change(network, terms.out, terms.control, s)
+    return changed_response(places, s[:, None] * terms.value * (factor - 1.0))
 
 
 def _first(

@@ -16,21 +16,23 @@ from collections.abc import Mapping
 import numpy as np
 from msgspec import Struct
 
-from tauledger.devices.parts import Part, capacitance
-from tauledger.network.assemble import Network, assemble, incidence
+from tauledger.circuit import GROUND
+from tauledger.devices.parts import Part
+from tauledger.network.altered import AddedCapacitor, with_capacitor
+from tauledger.network.assemble import Network, incidence
 from tauledger.network.edges import at_same_frequency
+from tauledger.network.first_order import follow_level
 from tauledger.network.identities import ON_THE_AXIS, Identity
 from tauledger.network.lines import line_moments
 from tauledger.network.midband import MidBand
 from tauledger.network.reactances import REACTIVE, moments, reactances, together
-from tauledger.network.solve import Complex, Real, log_slope, on_axis, response, solve
+from tauledger.network.solve import Complex, Real, log_slope, on_axis, solve
 from tauledger.network.unity import HALF_TURN_DEG, Unity, find_unity
 
 DB = 20.0 / np.log(10.0)
 PERCENT = 0.01
 CONVERGED = 1e-12
 STEPS = 12
-FOLLOWED = np.log(2.0)
 NEARBY = 1e-3
 
 
@@ -174,31 +176,25 @@ def with_capacitance(network: Network, node: str, farad: float) -> Network:
     name = "probe"
     while any(part.name == name for part in network.parts):
         name += "'"
-    return assemble((*network.parts, capacitance(name, node, "0", farad)), network.port, network.amplitudes)
+    return with_capacitor(network, AddedCapacitor(name, node, GROUND, farad))
 
 
 def follow_unity(changed: Network, midband: MidBand, unity: Unity) -> Followed | None:
     """Give f_u and phase margin of a changed network; None where it has none any more.
 
-    f_u is followed from where it was by Newton's method on ln|H|, the phase keeps the turn that lies nearest. Where
-    that leads nowhere, it is searched for. midband, unity: of the unchanged network.
+    f_u is followed from where it was, the phase keeps the turn that lies nearest. Where that leads nowhere, or to a
+    rise, it is searched for. midband, unity: of the unchanged network.
     Raises NetworkError where the changed network has no unique solution.
     """
-    start = u = float(np.log(unity.hz))
-    for _ in range(STEPS):
-        at = solve(changed, on_axis(np.exp(u)))
-        slope = float(log_slope(changed, at)[0].real)
-        step = -float(np.log(np.abs(at.response[0]))) / slope if slope < 0.0 else np.inf
-        u += step
-        if abs(u - start) > FOLLOWED:
-            break
-        if abs(step) < CONVERGED * max(1.0, abs(u)):
-            reference = at_same_frequency(changed, midband).gain
-            h = response(changed, np.array([np.exp(u)]))[0]
-            margin = HALF_TURN_DEG + float(np.angle(h / reference, deg=True))
+    reference = at_same_frequency(changed, midband)
+    hz = follow_level(changed, 1.0, np.array([unity.hz]))
+    if hz is not None:
+        at = solve(changed, on_axis(hz))
+        if log_slope(changed, at)[0].real < 0.0:
+            margin = HALF_TURN_DEG + float(np.angle(at.response[0] / reference.gain, deg=True))
             turns = 360.0 * round((unity.phase_margin_deg - margin) / 360.0)
-            return Followed(float(np.exp(u)), margin + turns)
-    found = find_unity(changed, at_same_frequency(changed, midband))
+            return Followed(float(hz[0]), margin + turns)
+    found = find_unity(changed, reference)
     return None if found is None else Followed(found.hz, found.phase_margin_deg)
 
 
