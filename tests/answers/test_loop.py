@@ -12,7 +12,14 @@ from tauledger.answers.double_injection import Cut, cut_into, cut_out_of, inject
 from tauledger.answers.loop_places import named_place, open_network
 from tauledger.asked import Asked
 from tauledger.circuit import ADDED, NO_CHANGE, Drive, Element, Port
-from tauledger.devices.parts import capacitance, resistance, transconductance, voltage_source
+from tauledger.devices.parts import (
+    capacitance,
+    inductance,
+    mutual_inductance,
+    resistance,
+    transconductance,
+    voltage_source,
+)
 from tauledger.engine.client import Engine
 from tauledger.errors import InputError
 from tauledger.netlist import read
@@ -300,3 +307,45 @@ def test_positive_feedback_is_called_that() -> None:
     assert any("positive feedback" in says for says in facts.says)
     assert facts.return_ratio_simulated is None
     assert review_network(Network.from_parts(parts, output=Port("out"))).loops == ()
+
+
+def test_a_source_that_nothing_comes_back_to_is_told_to_have_no_loop() -> None:
+    parts = [
+        voltage_source("VS", "s", "0", 1.0),
+        resistance("R1", "s", "b", 1e3),
+        transconductance("G1", ("0", "out"), ("b", "0"), 1e-3),
+        resistance("R2", "out", "0", 2e3),
+        capacitance("C1", "out", "0", 1e-9),
+    ]
+    found = review_network(Network.from_parts(parts, output=Port("out")), asked=Asked(loops=("G1",)))
+    facts = only(found)
+    assert facts.ideal_gain is None
+    assert facts.feedthrough == 0.0
+    assert facts.closed_gain == pytest.approx(2.0, rel=1e-12)
+
+
+def test_an_element_that_alone_holds_a_node_is_no_place_for_a_return_ratio() -> None:
+    parts = [
+        voltage_source("VS", "s", "0", 1.0),
+        resistance("R1", "s", "out", 1e3),
+        capacitance("C1", "out", "0", 1e-9),
+        resistance("R2", "x", "0", 2e3),
+        transconductance("G1", ("0", "x"), ("out", "0"), 1e-3),
+    ]
+    network = Network.from_parts(parts, output=Port("out"))
+    with pytest.raises(InputError, match="--loop R2: without R2 the network has no solution"):
+        review_network(network, asked=Asked(loops=("R2",)))
+
+
+def test_a_winding_of_a_transformer_is_no_place_for_a_return_ratio() -> None:
+    parts = [
+        voltage_source("VS", "s", "0", 1.0),
+        resistance("R1", "s", "a", 50.0),
+        inductance("L1", "a", "0", 1e-3),
+        inductance("L2", "out", "0", 4e-3),
+        mutual_inductance("K1", "L1", "L2", ("a", "0", "out", "0"), 1.98e-3),
+        resistance("R2", "out", "0", 200.0),
+    ]
+    network = Network.from_parts(parts, output=Port("out"))
+    with pytest.raises(InputError, match="--loop L2: a winding of a transformer"):
+        review_network(network, asked=Asked(loops=("L2",)))

@@ -128,6 +128,14 @@ def test_dominant_pole_before_a_pair_gets_the_sum_alone() -> None:
     assert (pair.hz, pair.q) == (None, None)
 
 
+def test_a_pole_at_the_origin_has_no_formula_and_crowds_no_other() -> None:
+    poles = np.array([0.0, -2.0, -300.0], dtype=complex)
+    pair = coefficients((1.0 / poles[1:]).astype(complex))
+    origin, second, first = hand_poles(poles, poles[:0], midband_hz=1e4, upper=None, lower=pair)
+    assert (origin.hz, origin.formula) == (None, "")
+    assert (first.formula, second.formula) == ("a1/2π", "a2/(2π·a1)")
+
+
 def test_no_hand_side_no_formulas() -> None:
     poles = np.array([-1.0, -5.0], dtype=complex)
     assert {pole.formula for pole in hand_poles(poles, poles[:0], midband_hz=0.0, upper=None, lower=None)} == {""}

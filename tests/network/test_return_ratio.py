@@ -277,3 +277,55 @@ def test_ratios_are_arrays_over_frequency() -> None:
     network = amplifier(SOURCES["G"])
     found: Complex = return_ratio(at_source(network, [network.part("A")]), on_axis(SEVERAL))
     assert found.shape == SEVERAL.shape
+
+
+def test_a_source_in_the_forward_path_alone_has_no_loop_and_no_ideal_gain() -> None:
+    parts = [
+        voltage_source("VS", "s", "0", 1.0),
+        resistance("R1", "s", "a", 1e3),
+        transconductance("G1", ("0", "out"), ("a", "0"), 2e-3),
+        resistance("R2", "out", "0", 5e3),
+        capacitance("C1", "out", "0", 1e-9),
+    ]
+    network = Network.from_parts(parts, output=Port("out"))
+    opening = at_source(network, [network.part("G1")])
+    found = asymptotic(opening, on_axis(SEVERAL))
+    assert np.all(found.return_ratio == 0.0)
+    assert np.all(np.isnan(found.ideal))
+    # what goes through the source is no feedthrough
+    assert np.all(found.feedthrough == 0.0)
+    assert checked(opening, on_axis(SEVERAL), response(network, SEVERAL)) < 1e-12
+
+
+def test_what_rounding_leaves_of_a_return_ratio_gives_no_ideal_gain() -> None:
+    parts = [
+        voltage_source("VS", "s", "0", 1.0),
+        resistance("R1", "s", "a", 1e3),
+        transconductance("G1", ("0", "b"), ("a", "0"), 2e-3),
+        resistance("R2", "b", "0", 5e3),
+        # bridges of 1e-9 Ω make rounding of all that stands beside them
+        resistance("R3", "b", "out", 1e-9),
+        resistance("R4", "out", "0", 3e3),
+        resistance("R5", "a", "s", 1e-9),
+        capacitance("C1", "out", "0", 1e-9),
+        capacitance("C2", "a", "out", 1e-32),
+    ]
+    network = Network.from_parts(parts, output=Port("out"))
+    opening = at_source(network, [network.part("G1")])
+    found = asymptotic(opening, on_axis(SEVERAL))
+    assert np.all(np.abs(found.return_ratio) > 0.0)
+    assert np.all(np.isnan(found.ideal))
+    assert checked(opening, on_axis(SEVERAL), response(network, SEVERAL)) < 1e-9
+
+
+def test_a_forced_voltage_and_a_current_together_are_no_single_source() -> None:
+    parts = [
+        voltage_source("VS", "s", "0", 1.0),
+        resistance("R1", "s", "a", 1e3),
+        voltage_gain("E1", ("out", "0"), ("a", "0"), 3.0),
+        current_gain("F1", "a", "0", -3.0, "E1"),
+        resistance("R2", "out", "0", 5e3),
+    ]
+    network = Network.from_parts(parts, output=Port("out"))
+    with pytest.raises(InputError, match="several outputs"):
+        at_source(network, [network.part("E1"), network.part("F1")])

@@ -91,6 +91,7 @@ ADMITTANCE = replace(
     gain_margin_db=None,
     lower_crossover_hz=None,
     ideal_gain=None,
+    closed_gain=WIRE.feedthrough,
     hand_return_ratio=None,
     hand_ideal_gain=None,
     hand_open_edge_hz=None,
@@ -161,6 +162,9 @@ def test_an_admittance_has_no_simulation_and_no_ideal_gain_where_nothing_passes_
     assert "is feedthrough A0 alone" in page
     assert "positive feedback" in page
     assert "by hand, edge" not in page
+    forward = replace(ADMITTANCE, closing_source="source G1", closed_gain=2.0, feedthrough=0.0)
+    told = "T is 0 there: source G1 has no loop; of the gain, 2 V/V, feedthrough A0 is 0 V/V"
+    assert told in words(terminal(with_loops(forward)))
 
 
 def test_an_amplifier_is_told_with_its_noise_gain() -> None:

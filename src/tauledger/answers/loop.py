@@ -181,7 +181,7 @@ def _with_gains(facts: LoopFacts, numbers: Numbers, place: Place, at_hz: float) 
         closing_return_ratio=t.real,
         ideal_gain=ideal.real if math.isfinite(abs(ideal)) else None,
         feedthrough=through.real,
-        closed_gain=complex(at.closed[0]).real if math.isfinite(abs(ideal)) else through.real,
+        closed_gain=complex(at.closed[0]).real,
         identity_error=error,
     )
 

@@ -22,6 +22,7 @@ from tauledger.errors import InputError, NetworkError
 from tauledger.explain import Explanation
 from tauledger.hand.equivalent import joined_nodes
 from tauledger.hand.feedback import LOOP_ABOVE, FoundLoop, find_loop
+from tauledger.network.admittance import admittance
 from tauledger.network.assemble import Network
 from tauledger.network.return_ratio import (
     BILATERAL,
@@ -34,6 +35,8 @@ from tauledger.network.return_ratio import (
     return_ratio,
 )
 from tauledger.network.solve import on_axis, solve
+from tauledger.network.spectrum import is_regular
+from tauledger.network.transformers import REFLECTED, TURNS
 from tauledger.numbers import Numbers
 
 FAR_BELOW = 1e6
@@ -87,11 +90,15 @@ def named_place(numbers: Numbers, name: str) -> Place:
             control=_control_word(device),
         )
     parts = _controlled(network, name)
+    if any(part.label == TURNS for part in parts):
+        raise InputError(f"--loop {name}: a winding of a transformer is no single source", _known(numbers, network))
     if parts:
         return _at_controlled(numbers, network, parts)
     part = next((one for one in network.parts if _is(one.name, name) and one.kind in BILATERAL), None)
     if part is not None:
-        return Place(part.name, f"admittance of {part.name}, against none", at_admittance(network, part))
+        opening = at_admittance(network, part)
+        _require_reference(numbers, opening, name)
+        return Place(part.name, f"admittance of {part.name}, against none", opening)
     instance = None if numbers.circuit is None else _instance(numbers.circuit, name)
     if instance is not None:
         return _at_instance(numbers, network, instance)
@@ -99,6 +106,18 @@ def named_place(numbers: Numbers, name: str) -> Place:
     if transistor is not None:
         return _into_terminal(numbers, transistor, terminal)
     raise InputError(f"--loop {name}: no return ratio can be taken there", _known(numbers, network))
+
+
+def _require_reference(numbers: Numbers, opening: Opening, name: str) -> None:
+    """Raise InputError where the network has no solution without the element, at any frequency."""
+    poles = [abs(pole.s) for pole in numbers.poles.poles if pole.s]
+    between = float(np.exp(np.mean(np.log(poles)))) if poles else 1.0
+    y = admittance(opening.network, np.array([between * np.exp(0.7j)]))[0]
+    if not is_regular(y):
+        raise InputError(
+            f"--loop {name}: without {name} the network has no solution: nothing else holds one of its nodes",
+            "name an element with others beside it",
+        )
 
 
 def find_places(numbers: Numbers, explanation: Explanation) -> list[Place]:
@@ -295,7 +314,9 @@ def _loops_of_instances(numbers: Numbers, instances: list[Instance]) -> list[Pla
 def _known(numbers: Numbers, network: Network) -> str:
     devices = [one.name for one in numbers.devices if one.cell is not None and one.terminals]
     sources = dict.fromkeys(
-        part.owner.partition("'")[0] for part in network.parts if part.kind in CONTROLLED and part.owner not in devices
+        part.owner.partition("'")[0]
+        for part in network.parts
+        if part.kind in CONTROLLED and part.owner not in devices and part.label not in (TURNS, REFLECTED)
     )
     named = [*devices, *sources]
     some = ", ".join(named[:8]) + (", …" if len(named) > 8 else "")

@@ -53,7 +53,8 @@ def hand_poles(
     Poles above mid-band belong to `upper` (b1 in s, b2 in s²), the others to `lower` (a1 in rad/s, a2 in (rad/s)²).
     """
     hidden = {complex(pole) for pole in cancelled}
-    seen = [complex(pole) for pole in poles if pole.imag >= 0 and complex(pole) not in hidden]
+    # one at the origin is a node that nothing holds at DC, and has no formula
+    seen = [complex(pole) for pole in poles if pole.imag >= 0 and pole != 0.0 and complex(pole) not in hidden]
     edge = 2 * math.pi * midband_hz
     above = sorted((pole for pole in seen if abs(pole) > edge), key=abs)
     below = sorted((pole for pole in seen if abs(pole) <= edge), key=abs, reverse=True)

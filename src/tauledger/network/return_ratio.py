@@ -38,6 +38,8 @@ CONTROLLED = (*CURRENT_KINDS, *VOLTAGE_KINDS)
 BILATERAL = ("conductance", "capacitance", "inductance")
 SERIES = "loop'e"
 IDENTITY = 1e-6
+# What comes back is lost in the rounding of the largest voltage or current that the source makes.
+ROUNDING = 1e-14
 # A determinant of badly scaled rows has lost more than a solution has.
 DETERMINANTS = 1e-3
 
@@ -66,17 +68,20 @@ class Opening(Struct, frozen=True):
 
 
 class Asymptotic(Struct, frozen=True):
-    """H = H∞·T/(1 + T) + H₀/(1 + T) at every s, (k,) each: return ratio, ideal gain H∞ (T → ∞), feedthrough H₀."""
+    """H = H∞·T/(1 + T) + H₀/(1 + T) at every s, (k,) each: return ratio, ideal gain H∞ (T → ∞), feedthrough H₀.
+
+    passed: P = (eᵀY₀⁻¹o)(cᵀY₀⁻¹b), what the source makes of the drive where nothing comes back; H∞ = H₀ − P/T.
+    """
 
     return_ratio: Complex
     ideal: Complex
     feedthrough: Complex
+    passed: Complex
 
     @property
     def closed(self) -> Complex:
-        """Give H by the formula."""
-        t = self.return_ratio
-        return np.asarray((self.ideal * t + self.feedthrough) / (1.0 + t), dtype=np.complex128)
+        """Give H = H₀ − P/(1 + T), which is the formula without H∞: a source without a loop has none."""
+        return np.asarray(self.feedthrough - self.passed / (1.0 + self.return_ratio), dtype=np.complex128)
 
 
 def at_source(network: Network, parts: Sequence[Part]) -> Opening:
@@ -100,6 +105,8 @@ def at_source(network: Network, parts: Sequence[Part]) -> Opening:
             sign = float(np.sign(own @ out))
             terms.append(Term(sign * part.value * _sensed(reference, part), part.delay_s))
     else:
+        if any(part.kind not in VOLTAGE_KINDS for part in parts):
+            raise InputError(f"{first.owner} has several outputs", "name one source of one output")
         out = np.zeros(reference.size)
         out[reference.branch(first.owner)] = 1.0
         terms += [Term(-part.value * _sensed(reference, part)) for part in parts]
@@ -160,7 +167,7 @@ def return_ratio(opening: Opening, s: Complex) -> Complex:
 def asymptotic(opening: Opening, s: Complex) -> Asymptotic:
     """Give T, ideal gain and feedthrough at every s (k,) in rad/s; not defined for a wire.
 
-    H∞ = H₀ − (eᵀY₀⁻¹o)(cᵀY₀⁻¹b)/T, NaN where T = 0.
+    H∞ = H₀ − (eᵀY₀⁻¹o)(cᵀY₀⁻¹b)/T, NaN where T is 0, or no more than what rounding makes of 0.
     Source: Rosenstark, 1974, equations 8 and 9 (from memory).
     Raises NetworkError where the reference has no unique solution.
     """
@@ -168,12 +175,13 @@ def asymptotic(opening: Opening, s: Complex) -> Asymptotic:
         raise ValueError("a wire has no single source: take the asymptotic gain at a source")
     at = solve(opening.network, s)
     control = _control(opening, s)
-    t = np.sum(control * _driven(opening.network, opening.out, s), axis=1)
+    answer = _driven(opening.network, opening.out, s)
+    t = np.sum(control * answer, axis=1)
     passed = (at.adjoint @ opening.out) * np.sum(control * at.x, axis=1)
     with np.errstate(divide="ignore", invalid="ignore"):
         ideal = at.response - passed / t
-    ideal[t == 0.0] = np.nan
-    return Asymptotic(np.asarray(t, dtype=np.complex128), ideal, at.response)
+    ideal[np.abs(t) <= ROUNDING * _largest(opening.network, control, answer)] = np.nan
+    return Asymptotic(np.asarray(t, dtype=np.complex128), ideal, at.response, passed)
 
 
 def ratio_to(opening: Opening, plus: str, minus: str, s: Complex) -> Complex:
@@ -195,15 +203,13 @@ def ratio_to(opening: Opening, plus: str, minus: str, s: Complex) -> Complex:
 def checked(opening: Opening, s: Complex, response: Complex) -> float:
     """Give the largest relative error of H by the asymptotic formula against `response` (k,) of the closed network.
 
-    NaN where T is 0 counts as no error, for H is H₀ there. Checks as well that 1 + T is det Y/det Y₀.
+    Checks as well that 1 + T is det Y/det Y₀.
     Raises NetworkError where the formula does not hold within 1e-6.
     """
     found = asymptotic(opening, s)
-    t = found.return_ratio
-    largest = np.fmax(np.abs(found.feedthrough / (1.0 + t)), np.abs(found.ideal * t / (1.0 + t)))
-    scale = np.maximum(np.abs(response), largest)
-    by_formula = np.where(t == 0.0, found.feedthrough, found.closed)
-    error = float(np.max(np.abs(by_formula - response) / scale))
+    passed = np.abs(found.passed / (1.0 + found.return_ratio))
+    scale = np.maximum(np.abs(response), np.maximum(np.abs(found.feedthrough), passed))
+    error = float(np.max(np.abs(found.closed - response) / scale))
     identities = [Identity("closed loop by the asymptotic gain formula", error, 0.0, IDENTITY, 1.0)]
     if opening.network.size == opening.whole.size <= DENSE_LIMIT:
         closed, reference = (np.linalg.slogdet(admittance(one, s)) for one in (opening.whole, opening.network))
@@ -220,6 +226,15 @@ def _sensed(network: Network, part: Part) -> Real:
         row[network.branch(part.references[0])] = 1.0
         return row
     return incidence(network, part.nodes[-2], part.nodes[-1])
+
+
+def _largest(network: Network, control: Complex, answer: Complex) -> Real:
+    """Give what cᵀ·x would be if all that c senses were as large as the largest voltage, or current, of x, (k,)."""
+    sensed, found = np.abs(control), np.abs(answer)
+    n = network.n_nodes
+    voltages = np.sum(sensed[:, :n], axis=1) * np.max(found[:, :n], axis=1, initial=0.0)
+    currents = np.sum(sensed[:, n:], axis=1) * np.max(found[:, n:], axis=1, initial=0.0)
+    return np.asarray(voltages + currents, dtype=np.float64)
 
 
 def _control(opening: Opening, s: Complex) -> Complex:

@@ -135,7 +135,7 @@ def _lowest(g: Real, c: Real) -> tuple[float, int] | None:
     """Give where to start (at or below the lowest pole that is not at the origin) and how many are at the origin."""
     if not np.any(c):
         return None
-    if _regular(g):
+    if is_regular(g):
         s = np.abs(shifted(g, c, 0.0))
         finite = s[s < HIGHEST_RAD_S]
         return (float(finite.min()) * OFF_ROUND, 0) if len(finite) else None
@@ -146,8 +146,8 @@ def _lowest(g: Real, c: Real) -> tuple[float, int] | None:
     return shift / WINDOW, int(np.sum(s < shift / WINDOW))
 
 
-def _regular(g: Real) -> bool:
-    """Whether G has an inverse that rounding leaves any meaning, judged after scaling rows and columns."""
+def is_regular(g: Real | Complex) -> bool:
+    """Whether a matrix (n, n) has an inverse that rounding leaves any meaning, judged with rows and columns scaled."""
     rows = np.max(np.abs(g), axis=1)
     if not np.all(rows):
         return False

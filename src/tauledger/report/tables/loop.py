@@ -65,7 +65,12 @@ def closed_text(facts: LoopFacts) -> tuple[str, ...]:
         return ()
     through = number(facts.feedthrough, facts.unit)
     if facts.ideal_gain is None:
-        return (f"T is 0 there: the gain, {number(facts.closed_gain, facts.unit)}, is feedthrough A0 alone",)
+        closed = number(facts.closed_gain, facts.unit)
+        if closed == through:
+            return (f"T is 0 there: the gain, {closed}, is feedthrough A0 alone",)
+        return (
+            f"T is 0 there: {facts.closing_source} has no loop; of the gain, {closed}, feedthrough A0 is {through}",
+        )
     wire = math.hypot(facts.return_ratio_real, facts.return_ratio_imag)
     own = abs(facts.closing_return_ratio - wire) > SAME * wire
     other = f", T {_plain(facts.closing_return_ratio)} at {facts.closing_source}, its own resistances counted"
