@@ -227,7 +227,7 @@ def page_for(
 
 def _with_page(found: Review, page: Page, numbers: Numbers, explanation: Explanation) -> Review:
     """Set the page's figures beside hand and exact; nothing can be said where the network is not trusted."""
-    from tauledger.paper.compare import Subject, compare
+    from tauledger.paper.compare import Reviewed, compare
 
     if not numbers.trusted:
         raise InputError(f"{page.path}: no figure can be checked", "the rebuilt network is not the simulated circuit")
@@ -235,7 +235,7 @@ def _with_page(found: Review, page: Page, numbers: Numbers, explanation: Explana
         name: (facts.simulated_hz if facts.simulated_hz is not None else facts.exact_hz) if facts else None
         for name, facts in (("f_high", found.f_high), ("f_low", found.f_low))
     }
-    subject = Subject(
+    reviewed = Reviewed(
         bands=numbers.bands,
         devices=numbers.devices,
         hand=explanation.hand,
@@ -244,4 +244,4 @@ def _with_page(found: Review, page: Page, numbers: Numbers, explanation: Explana
         gain_unit=found.midband.unit,
         temperature_c=found.temperature_c,
     )
-    return replace(found, paper=compare(page, subject))
+    return replace(found, paper=compare(page, reviewed))

@@ -14,7 +14,7 @@ from tauledger.hand.equivalent import upper_circuit
 from tauledger.netlist import read
 from tauledger.numbers import Numbers, solve
 from tauledger.paper.bench import work
-from tauledger.paper.compare import Subject, compare
+from tauledger.paper.compare import Reviewed, compare
 from tauledger.paper.page import read_page
 from tauledger.paper.slips import slips
 from tauledger.record import PaperFigure
@@ -25,7 +25,7 @@ SLIPPED = ("common emitter", "cascode", "balanced pair")
 
 
 @pytest.fixture(scope="module")
-def subjects(engine: Engine, tmp_path_factory: pytest.TempPathFactory) -> dict[str, Subject]:
+def subjects(engine: Engine, tmp_path_factory: pytest.TempPathFactory) -> dict[str, Reviewed]:
     folder: Path = tmp_path_factory.mktemp("edges")
     found = {}
     for number, (name, board) in enumerate(ROLE_BOARDS.items()):
@@ -35,10 +35,10 @@ def subjects(engine: Engine, tmp_path_factory: pytest.TempPathFactory) -> dict[s
     return found
 
 
-def subject_of(numbers: Numbers) -> Subject:
+def subject_of(numbers: Numbers) -> Reviewed:
     simulated = numbers.simulated
     assert simulated is not None
-    return Subject(
+    return Reviewed(
         bands=numbers.bands,
         devices=numbers.devices,
         hand=explain(numbers).hand,
@@ -49,38 +49,38 @@ def subject_of(numbers: Numbers) -> Subject:
     )
 
 
-def told(subject: Subject, edge: str, hz: float) -> PaperFigure:
-    (figure,) = compare(read_page(f"{edge} = {hz!r}\n", "page.toml"), subject)
+def told(reviewed: Reviewed, edge: str, hz: float) -> PaperFigure:
+    (figure,) = compare(read_page(f"{edge} = {hz!r}\n", "page.toml"), reviewed)
     return figure
 
 
-def right(subject: Subject) -> dict[str, list[float]]:
+def right(reviewed: Reviewed) -> dict[str, list[float]]:
     """Every answer that has no slip in it: the exact edge, and each method by hand."""
-    assert subject.hand is not None
-    found = {edge: [row.hz for row in subject.hand.methods if row.edge == edge and row.hz] for edge in EDGES}
-    for edge, exact in (("f_high", subject.f_high), ("f_low", subject.f_low)):
+    assert reviewed.hand is not None
+    found = {edge: [row.hz for row in reviewed.hand.methods if row.edge == edge and row.hz] for edge in EDGES}
+    for edge, exact in (("f_high", reviewed.f_high), ("f_low", reviewed.f_low)):
         found[edge] = [] if exact is None else [*found[edge], exact]
     return found
 
 
 @pytest.mark.parametrize("name", ROLE_BOARDS)
-def test_no_edge_that_is_right_or_by_a_classical_method_is_a_slip(name: str, subjects: dict[str, Subject]) -> None:
-    subject = subjects[name]
-    for edge, answers in right(subject).items():
+def test_no_edge_that_is_right_or_by_a_classical_method_is_a_slip(name: str, subjects: dict[str, Reviewed]) -> None:
+    reviewed = subjects[name]
+    for edge, answers in right(reviewed).items():
         for hz in answers:
-            figure = told(subject, edge, hz)
+            figure = told(reviewed, edge, hz)
             assert figure.slip == "", (edge, hz, figure.says)
 
 
 @pytest.mark.parametrize("name", SLIPPED)
-def test_a_slip_is_named_through_every_method(name: str, subjects: dict[str, Subject]) -> None:
-    subject = subjects[name]
-    assert subject.hand is not None
-    circuit = upper_circuit(subject.bands, subject.devices)
-    answers = right(subject)
+def test_a_slip_is_named_through_every_method(name: str, subjects: dict[str, Reviewed]) -> None:
+    reviewed = subjects[name]
+    assert reviewed.hand is not None
+    circuit = upper_circuit(reviewed.bands, reviewed.devices)
+    answers = right(reviewed)
     methods, checked = set(), 0
-    for slip in slips(subject.bands, circuit, temperature_c=27.0):
-        worked = work(subject.bands, subject.hand, slip.edit, slip.factor)
+    for slip in slips(reviewed.bands, circuit, temperature_c=27.0):
+        worked = work(reviewed.bands, reviewed.hand, slip.edit, slip.factor)
         if worked is None or slip.at_nodes:
             continue
         for (edge, method), hz in worked.edges.items():
@@ -88,7 +88,7 @@ def test_a_slip_is_named_through_every_method(name: str, subjects: dict[str, Sub
             if not answers[edge] or min(abs(hz / other - 1.0) for other in answers[edge]) <= OFF:
                 continue
             if edge == "f_high" or checked < 12:
-                figure = told(subject, edge, hz)
+                figure = told(reviewed, edge, hz)
                 assert figure.slip == slip.id or slip.says in figure.says, (slip.id, edge, method, figure.says)
                 methods.add(method)
                 checked += 1

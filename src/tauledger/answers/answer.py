@@ -81,6 +81,12 @@ def answer(found: Review, subject: Subject, asked: Asked) -> Review:
     return found
 
 
+def restore(subject: Subject) -> None:
+    """Load the circuit of these numbers into the engine again, after runs of others; nothing without an engine."""
+    if subject.engine is not None and subject.numbers.circuit is not None:
+        subject.engine.bias(subject.numbers.circuit, ())
+
+
 def with_unity_gain(found: Review, subject: Subject, *, asked: bool) -> Review:
     """Add f_u and its margins where the gain is a plain ratio above 1.
 

@@ -15,7 +15,8 @@ import numpy as np
 from msgspec import Struct
 from msgspec.structs import replace
 
-from tauledger.answers.answer import Subject
+from tauledger.answers.answer import Subject, restore
+from tauledger.answers.modes import in_opposite_phase
 from tauledger.circuit import ADDED, GROUND, Circuit, Drive, Element, Port, fold
 from tauledger.engine.grid import decades
 from tauledger.errors import NetworkError
@@ -37,7 +38,6 @@ from tauledger.numbers import Numbers
 from tauledger.record import ImpedanceCurvePoint, ImpedanceFacts, ImpedancePoint
 
 MIDBAND, UPPER_EDGE = "mid-band", "f_H"
-EQUAL = 1e-9
 
 
 def impedances(subject: Subject) -> tuple[ImpedanceFacts, ...]:
@@ -48,16 +48,14 @@ def impedances(subject: Subject) -> tuple[ImpedanceFacts, ...]:
     """
     numbers = subject.numbers
     network = numbers.network
-    driven = [part for part in network.parts if part.kind.endswith("source") and network.amplitude(part)]
     found: list[ImpedanceFacts] = []
-    ports = [source_port(network, source) for source in driven]
-    opposite = len(ports) == 2 and abs(sum(map(network.amplitude, driven))) <= EQUAL * abs(network.amplitude(driven[0]))
+    ports = [source_port(network, source) for source in network.driving]
+    opposite = len(ports) == 2 and in_opposite_phase(network, *network.driving)
     for k, port in enumerate(ports):
         found += _inputs(subject, port, ports[1 - k] if opposite else None, alone=len(ports) == 1)
     if network.port.kind == "voltage":
         found += _outputs(subject)
-    if subject.engine is not None and numbers.circuit is not None:
-        subject.engine.bias(numbers.circuit, ())
+    restore(subject)
     return tuple(found)
 
 

@@ -11,7 +11,7 @@ import math
 import numpy as np
 from msgspec.structs import replace
 
-from tauledger.answers.answer import Subject
+from tauledger.answers.answer import Subject, restore
 from tauledger.circuit import fold
 from tauledger.devices.parts import Part
 from tauledger.network.assemble import Network
@@ -41,8 +41,7 @@ def mode_facts(found: Review, subject: Subject) -> ModesFacts | None:
     hz = np.array([at for _, at in points])
     exact = {name: _exact(numbers.network, pair, MODES[name], hz) for name in MODES}
     simulated = {name: _simulated(subject, pair, MODES[name], hz) for name in MODES}
-    if subject.engine is not None and numbers.circuit is not None:
-        subject.engine.bias(numbers.circuit, ())
+    restore(subject)
     rows = tuple(
         ModeRow(
             name,
@@ -57,14 +56,20 @@ def mode_facts(found: Review, subject: Subject) -> ModesFacts | None:
 
 def driven_pair(network: Network) -> tuple[Part, Part] | None:
     """Give the two sources that drive with equal size, in phase or in opposite phase, plus first; None where not."""
-    driven = [part for part in network.parts if part.kind.endswith("source") and network.amplitude(part)]
-    if len(driven) != 2 or driven[0].kind != driven[1].kind:
+    if len(network.driving) != 2:
         return None
-    first, second = (network.amplitude(part) for part in driven)
-    if min(abs(first - second), abs(first + second)) > EQUAL * abs(first):
+    one, other = network.driving
+    first, second = network.amplitude(one), network.amplitude(other)
+    opposite = in_opposite_phase(network, one, other)
+    if one.kind != other.kind or not (opposite or abs(first - second) <= EQUAL * abs(first)):
         return None
-    opposite = abs(first + second) <= EQUAL * abs(first)
-    return (driven[1], driven[0]) if opposite and first.real < 0.0 else (driven[0], driven[1])
+    return (other, one) if opposite and first.real < 0.0 else (one, other)
+
+
+def in_opposite_phase(network: Network, one: Part, other: Part) -> bool:
+    """Whether two sources drive with equal size and opposite sign."""
+    first = network.amplitude(one)
+    return abs(first + network.amplitude(other)) <= EQUAL * abs(first)
 
 
 def _exact(network: Network, pair: tuple[Part, Part], amplitudes: tuple[float, float], hz: Real) -> Complex:

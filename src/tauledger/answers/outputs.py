@@ -7,7 +7,7 @@ import math
 import numpy as np
 from msgspec.structs import replace
 
-from tauledger.answers.answer import Subject
+from tauledger.answers.answer import Subject, restore
 from tauledger.circuit import Circuit, Port, fold
 from tauledger.compose.setting import unit_of
 from tauledger.devices.parts import WITH_BRANCH
@@ -38,8 +38,7 @@ def output_rows(subject: Subject, outputs: tuple[str, ...]) -> tuple[OutputRow, 
         raise InputError("further outputs are read from a netlist", "review the network once per output")
     ports = [_port(numbers.network, circuit, output) for output in outputs]
     rows = tuple(_row(subject, circuit, port) for port in ports)
-    if subject.engine is not None:
-        subject.engine.bias(circuit, ())
+    restore(subject)
     return rows
 
 

@@ -6,7 +6,7 @@ import math
 
 from msgspec.structs import replace
 
-from tauledger.answers.answer import Subject
+from tauledger.answers.answer import Subject, restore
 from tauledger.answers.changed_circuit import changed_circuit, is_card
 from tauledger.answers.figures import QUANTITIES, Figures, figures_of, simulated_figure
 from tauledger.answers.phase_budget import paper_roots
@@ -37,8 +37,8 @@ def want_facts(found: Review, subject: Subject, wants: tuple[Want, ...]) -> tupl
         )
     now = figures_of(numbers.network, numbers.midband, chosen=numbers.midband_chosen)
     told = tuple(_answered(found, subject, want, now) for want in wants)
-    if subject.engine is not None and numbers.circuit is not None and not all(one.met for one in told):
-        subject.engine.bias(numbers.circuit, ())
+    if not all(one.met for one in told):
+        restore(subject)
     return told
 
 

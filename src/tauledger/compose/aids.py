@@ -36,8 +36,8 @@ def aid_notes(numbers: Numbers) -> tuple[NoteFacts, ...]:
     told += [f"{element.name} 0 V as ammeter" for element in _ammeters(numbers)]
     told += [
         f"the drive {part.name} floating between {part.nodes[0]} and {part.nodes[1]}"
-        for part in network.parts
-        if part.kind == "voltage source" and GROUND not in part.nodes and network.amplitude(part) != 0.0
+        for part in network.driving
+        if part.kind == "voltage source" and GROUND not in part.nodes
     ]
     notes = [NoteFacts("measuring-aids", "", f"measuring aids left out: {', '.join(told)}")] if told else []
     return (*notes, *(_too_large(numbers, part) for part in huge if _loses_all_digits(numbers, part)))

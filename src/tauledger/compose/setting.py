@@ -28,7 +28,6 @@ MOST_OF_A_RIPPLE = 1500
 MOST_TURNS = 8000
 LIMITS = 0.005
 WORD = re.compile(r"(?<![\w.])(?:\w+\.)*[rR]\w*(?![\w(.])")
-SOURCES = ("voltage source", "current source")
 # By the first letter of a figure's symbol: i_c, v_ce, gm, r_o, c_pi, f_t.
 UNITS = {"i": "A", "v": "V", "g": "S", "r": "Ω", "c": "F", "f": "Hz"}
 EFFICIENCY = "gm/I"
@@ -36,9 +35,8 @@ EFFICIENCY = "gm/I"
 
 def drive_facts(numbers: Numbers) -> tuple[DriveFacts, ...]:
     """Give the driven sources, each with the one resistor in series with it if there is exactly one."""
-    driven = [part for part in numbers.network.parts if part.kind in SOURCES and numbers.network.amplitude(part) != 0.0]
     facts = []
-    for part in driven:
+    for part in numbers.network.driving:
         kind = "voltage" if part.kind == "voltage source" else "current"
         amplitude = numbers.network.amplitude(part)
         facts.append(DriveFacts(part.owner, kind, amplitude.real, amplitude.imag, _series(numbers, part.nodes)))

@@ -38,6 +38,7 @@ PartKind = Literal[
 
 Matrix = tuple[tuple[float, ...], ...]
 
+SOURCES = ("voltage source", "current source")
 WITH_BRANCH = ("voltage source", "inductance", "voltage gain", "transresistance")
 
 

@@ -22,7 +22,7 @@ from numpy.typing import NDArray
 
 from tauledger.circuit import GROUND, Port, fold
 from tauledger.devices.family import inner_node
-from tauledger.devices.parts import WITH_BRANCH, Part, voltage_source
+from tauledger.devices.parts import SOURCES, WITH_BRANCH, Part, voltage_source
 from tauledger.errors import NetworkError
 
 LARGE_FARAD = 1.0
@@ -90,6 +90,11 @@ class Network(Struct, frozen=True):
         """Give the complex amplitude in V or A with which a source of this network is driven."""
         return self.amplitudes[fold(source.owner)]
 
+    @property
+    def driving(self) -> tuple[Part, ...]:
+        """The sources that drive, in the order of the parts: those with an amplitude other than 0."""
+        return tuple(part for part in self.parts if part.kind in SOURCES and self.amplitude(part) != 0.0)
+
     def part(self, name: str) -> Part:
         """Give the part with this name ("CL", "Q1.c_mu"); KeyError where there is none."""
         for part in self.parts:
@@ -118,9 +123,7 @@ def assemble(parts: tuple[Part, ...], port: Port, drive: Mapping[str, complex]) 
     b = np.zeros(n, dtype=complex)
     branch = len(nodes)
     amplitudes = {
-        fold(part.owner): complex(drive.get(fold(part.owner), part.amplitude))
-        for part in parts
-        if part.kind in ("voltage source", "current source")
+        fold(part.owner): complex(drive.get(fold(part.owner), part.amplitude)) for part in parts if part.kind in SOURCES
     }
     for part in parts:
         rows = [at.get(node, -1) for node in part.nodes]

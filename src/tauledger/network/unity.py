@@ -90,8 +90,7 @@ def find_unity(network: Network, midband: MidBand, edges: Edges | None = None) -
 
 def is_ratio(network: Network) -> bool:
     """Whether the response is a plain ratio, V/V or A/A, so that 1 means something."""
-    into = {part.kind for part in network.parts if part.kind.endswith("source") and network.amplitude(part) != 0.0}
-    return into == {f"{network.port.kind} source"}
+    return {part.kind for part in network.driving} == {f"{network.port.kind} source"}
 
 
 def _outwards(network: Network, midband: MidBand, edges: Edges) -> tuple[Real, Complex]:

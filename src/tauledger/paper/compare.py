@@ -30,7 +30,7 @@ TWO_PI = 2.0 * math.pi
 _OWN = re.compile(r"r_(?!π)\w+\(.*\)")
 
 
-class Subject(Struct, frozen=True):
+class Reviewed(Struct, frozen=True):
     """The reviewed circuit, as far as a page can speak of it.
 
     f_high, f_low: the edge that counts (simulated, else exact), Hz. hand: None where the hand side is withheld.
@@ -71,37 +71,40 @@ class SlipWorked(Struct, frozen=True):
     at_nodes: bool = False
 
 
-def compare(page: Page, subject: Subject) -> tuple[PaperFigure, ...]:
+def compare(page: Page, reviewed: Reviewed) -> tuple[PaperFigure, ...]:
     """Set every figure of the page beside hand and exact, in the order of the page.
 
     Raises NetlistError, with the place on the page, for a node, device or figure that this circuit does not have.
     """
-    beside = [_beside(page, claim, subject) for claim in page.claims]
-    said = [_said(claim, at, subject) for claim, at in zip(page.claims, beside, strict=True)]
+    beside = [_beside(page, claim, reviewed) for claim in page.claims]
+    said = [_said(claim, at, reviewed) for claim, at in zip(page.claims, beside, strict=True)]
     # every slip works the circuit once more: only for a figure that nothing else explains
-    worked = _worked(subject) if "" in said else ()
+    worked = _worked(reviewed) if "" in said else ()
     return tuple(
-        _figure(claim, at, subject, worked, says) for claim, at, says in zip(page.claims, beside, said, strict=True)
+        _figure(claim, at, reviewed, worked, says) for claim, at, says in zip(page.claims, beside, said, strict=True)
     )
 
 
-def _said(claim: Claim, beside: Beside, subject: Subject) -> str:
+def _said(claim: Claim, beside: Beside, reviewed: Reviewed) -> str:
     """Say what is to be said of a figure without any slip; empty where it takes one."""
     if not (beside.exact if beside.exact is not None else beside.hand):
         return "there is nothing to set beside it"
     if _agrees(claim, beside):
         return "agrees within 2 %"
     return (
-        _method(claim, subject) or _by_hand(claim, beside) or _elsewhere(claim, subject) or _plain_sum(claim, subject)
+        _method(claim, reviewed)
+        or _by_hand(claim, beside)
+        or _elsewhere(claim, reviewed)
+        or _plain_sum(claim, reviewed)
     )
 
 
-def _figure(claim: Claim, beside: Beside, subject: Subject, worked: Sequence[SlipWorked], says: str) -> PaperFigure:
+def _figure(claim: Claim, beside: Beside, reviewed: Reviewed, worked: Sequence[SlipWorked], says: str) -> PaperFigure:
     reference = beside.exact if beside.exact is not None else beside.hand
     off = None if not reference else _size(claim) / _matching(claim, reference) - 1.0
     slip, value = "", None
     if not says:
-        slip, value, says = _named(claim, beside, subject, worked)
+        slip, value, says = _named(claim, beside, reviewed, worked)
     return PaperFigure(
         where=claim.name,
         key=claim.key,
@@ -118,21 +121,21 @@ def _figure(claim: Claim, beside: Beside, subject: Subject, worked: Sequence[Sli
     )
 
 
-def _beside(page: Page, claim: Claim, subject: Subject) -> Beside:
+def _beside(page: Page, claim: Claim, reviewed: Reviewed) -> Beside:
     if claim.kind == "device":
-        return _of_device(page, claim, subject)
+        return _of_device(page, claim, reviewed)
     if claim.kind == "node":
-        return _of_node(page, claim, subject)
+        return _of_node(page, claim, reviewed)
     if claim.key == "gain":
-        gains = [row.gain_hand for row in subject.hand.stages] if subject.hand else []
+        gains = [row.gain_hand for row in reviewed.hand.stages] if reviewed.hand else []
         known = [gain for gain in gains if gain is not None]
         by_hand = math.prod(known) if known and len(known) == len(gains) else None
-        return Beside("gain", subject.gain_unit, by_hand, subject.bands.midband.gain.real)
-    if subject.hand is None:
+        return Beside("gain", reviewed.gain_unit, by_hand, reviewed.bands.midband.gain.real)
+    if reviewed.hand is None:
         by_hand = None
     else:
-        by_hand = subject.hand.hand_f_high_hz if claim.key == "f_high" else subject.hand.hand_f_low_hz
-    exact = subject.f_high if claim.key == "f_high" else subject.f_low
+        by_hand = reviewed.hand.hand_f_high_hz if claim.key == "f_high" else reviewed.hand.hand_f_low_hz
+    exact = reviewed.f_high if claim.key == "f_high" else reviewed.f_low
     if exact is None:
         side = "above" if claim.key == "f_high" else "below"
         raise problem(
@@ -144,10 +147,10 @@ def _beside(page: Page, claim: Claim, subject: Subject) -> Beside:
     return Beside("f_H" if claim.key == "f_high" else "f_L", "Hz", by_hand, exact)
 
 
-def _of_node(page: Page, claim: Claim, subject: Subject) -> Beside:
-    row = _row(claim, subject)
+def _of_node(page: Page, claim: Claim, reviewed: Reviewed) -> Beside:
+    row = _row(claim, reviewed)
     if row is None:
-        names = ", ".join(node.name for node in subject.hand.nodes if not node.second) if subject.hand else ""
+        names = ", ".join(node.name for node in reviewed.hand.nodes if not node.second) if reviewed.hand else ""
         raise problem(
             page.path,
             claim.place,
@@ -181,10 +184,10 @@ def _of_node(page: Page, claim: Claim, subject: Subject) -> Beside:
     return Beside(title, UNITS[claim.key], by_hand, exact)
 
 
-def _of_device(page: Page, claim: Claim, subject: Subject) -> Beside:
-    device = next((one for one in subject.devices if fold(one.name) == fold(claim.name)), None)
+def _of_device(page: Page, claim: Claim, reviewed: Reviewed) -> Beside:
+    device = next((one for one in reviewed.devices if fold(one.name) == fold(claim.name)), None)
     if device is None:
-        names = ", ".join(one.name for one in subject.devices) or "none"
+        names = ", ".join(one.name for one in reviewed.devices) or "none"
         raise problem(page.path, claim.place, f"there is no device {claim.name}", f"devices here: {names}")
     figures = figures_by_key(device)
     if claim.key not in figures:
@@ -193,8 +196,8 @@ def _of_device(page: Page, claim: Claim, subject: Subject) -> Beside:
     return Beside(f"{symbol_of(claim.key)} of {device.name}", unit_of(claim.key), None, figures[claim.key])
 
 
-def _row(claim: Claim, subject: Subject) -> SignalNode | None:
-    rows = subject.hand.nodes if subject.hand else ()
+def _row(claim: Claim, reviewed: Reviewed) -> SignalNode | None:
+    rows = reviewed.hand.nodes if reviewed.hand else ()
     wanted = fold(claim.name)
     named = [row for row in rows if fold(row.name) == wanted]
     return next(iter(named + [row for row in rows if wanted in {fold(member) for member in row.members}]), None)
@@ -219,9 +222,9 @@ def _agrees(claim: Claim, beside: Beside) -> bool:
     return _close(claim, beside.exact if beside.exact is not None else beside.hand, OFF)
 
 
-def _method(claim: Claim, subject: Subject) -> str:
+def _method(claim: Claim, reviewed: Reviewed) -> str:
     """Say which classical method gives an edge that is off: then the method is the reason and no slip."""
-    methods = [row for row in subject.hand.methods if row.edge == claim.key] if subject.hand else []
+    methods = [row for row in reviewed.hand.methods if row.edge == claim.key] if reviewed.hand else []
     near = [row for row in methods if row.hz is not None and _close(claim, row.hz, OFF)]
     if not near:
         return ""
@@ -237,9 +240,9 @@ def _by_hand(claim: Claim, beside: Beside) -> str:
     return "no slip: it is the value by hand, which is off by as much here"
 
 
-def _elsewhere(claim: Claim, subject: Subject) -> str:
+def _elsewhere(claim: Claim, reviewed: Reviewed) -> str:
     """Say that a Miller gain is that of another capacitance of the same node, outside or inside r_b."""
-    row = _row(claim, subject) if claim.key == "miller_gain" else None
+    row = _row(claim, reviewed) if claim.key == "miller_gain" else None
     for line in row.lines if row is not None else ():
         for term in line.capacitances:
             if _close(claim, 1.0 - term.exact_factor, REPRODUCES) and term.exact_factor != 1.0:
@@ -247,9 +250,9 @@ def _elsewhere(claim: Claim, subject: Subject) -> str:
     return ""
 
 
-def _plain_sum(claim: Claim, subject: Subject) -> str:
+def _plain_sum(claim: Claim, reviewed: Reviewed) -> str:
     """Say that a capacitance is the sum of the parts with Miller's factors, those behind r_b taken in full."""
-    row = _row(claim, subject) if claim.key in ("capacitance", "time_constant") else None
+    row = _row(claim, reviewed) if claim.key in ("capacitance", "time_constant") else None
     if row is None:
         return ""
     plain = math.fsum(line.capacitance_f for line in row.lines)
@@ -263,18 +266,18 @@ def _plain_sum(claim: Claim, subject: Subject) -> str:
     return f"no slip: it is {says}; those that see a smaller resistance count less, in all {effective}"
 
 
-def _worked(subject: Subject) -> Sequence[SlipWorked]:
+def _worked(reviewed: Reviewed) -> Sequence[SlipWorked]:
     """Work the circuit once per slip. Nothing where capacitors set the gain: it has no such mid-band."""
-    if subject.hand is None or subject.bands.gain_setting:
+    if reviewed.hand is None or reviewed.bands.gain_setting:
         return ()
-    circuit = upper_circuit(subject.bands, subject.devices)
+    circuit = upper_circuit(reviewed.bands, reviewed.devices)
     found: list[SlipWorked] = []
-    for slip in slips(subject.bands, circuit, temperature_c=subject.temperature_c):
-        worked = work(subject.bands, subject.hand, slip.edit, slip.factor)
+    for slip in slips(reviewed.bands, circuit, temperature_c=reviewed.temperature_c):
+        worked = work(reviewed.bands, reviewed.hand, slip.edit, slip.factor)
         if worked is not None:
             found.append(SlipWorked(slip.id, slip.says, worked, slip.at_nodes))
-    if any(row.image for row in subject.hand.nodes):
-        alone = work(subject.bands, subject.hand, {}, halves=False)
+    if any(row.image for row in reviewed.hand.nodes):
+        alone = work(reviewed.bands, reviewed.hand, {}, halves=False)
         if alone is not None:
             says = "one half driven alone, not both in opposite phase,"
             found.append(SlipWorked("half-circuit-ignored", says, alone))
@@ -282,13 +285,13 @@ def _worked(subject: Subject) -> Sequence[SlipWorked]:
 
 
 def _named(
-    claim: Claim, beside: Beside, subject: Subject, worked: Sequence[SlipWorked]
+    claim: Claim, beside: Beside, reviewed: Reviewed, worked: Sequence[SlipWorked]
 ) -> tuple[str, float | None, str]:
     """Name the slip whose value lies nearest to the figure, within 1 %, and that is itself off by more than 2 %."""
     right = beside.exact if beside.exact is not None else beside.hand
     candidates = [
         candidate
-        for candidate in _candidates(claim, beside, subject, worked)
+        for candidate in _candidates(claim, beside, reviewed, worked)
         if right and math.isfinite(candidate.value) and candidate.value
         if abs(_matching(claim, candidate.value) / _matching(claim, right) - 1.0) > OFF
         if _close(claim, candidate.value, REPRODUCES)
@@ -304,21 +307,21 @@ def _named(
     return best.slip, best.value, told + also
 
 
-def _candidates(claim: Claim, beside: Beside, subject: Subject, worked: Sequence[SlipWorked]) -> list[Candidate]:
+def _candidates(claim: Claim, beside: Beside, reviewed: Reviewed, worked: Sequence[SlipWorked]) -> list[Candidate]:
     found: list[Candidate] = []
     for one in worked:
         if one.at_nodes and claim.kind != "node":
             continue
-        values = _values(claim, subject, one.slip, one.worked)
+        values = _values(claim, reviewed, one.slip, one.worked)
         found += [Candidate(one.slip, one.says + how, value) for how, value in values]
     if claim.key == "gain" and beside.exact is not None:
-        found += _by_stage(subject, worked, beside.exact)
-    return [*found, *_two_pi(claim, beside, subject), *_series(claim, subject), *_device_slips(claim, subject)]
+        found += _by_stage(reviewed, worked, beside.exact)
+    return [*found, *_two_pi(claim, beside, reviewed), *_series(claim, reviewed), *_device_slips(claim, reviewed)]
 
 
-def _values(claim: Claim, subject: Subject, slip: str, worked: Worked) -> list[tuple[str, float]]:
+def _values(claim: Claim, reviewed: Reviewed, slip: str, worked: Worked) -> list[tuple[str, float]]:
     """Give what the changed circuit makes of the figure; of an edge by every simple method."""
-    row = _row(claim, subject) if claim.kind == "node" else None
+    row = _row(claim, reviewed) if claim.kind == "node" else None
     if row is not None:
         at = worked.nodes[row.name]
         values = [getattr(at, claim.key)]
@@ -336,9 +339,9 @@ def _values(claim: Claim, subject: Subject, slip: str, worked: Worked) -> list[t
     return []
 
 
-def _by_stage(subject: Subject, worked: Sequence[SlipWorked], gain: float) -> list[Candidate]:
+def _by_stage(reviewed: Reviewed, worked: Sequence[SlipWorked], gain: float) -> list[Candidate]:
     """Scale the gain by the load of the stage from which an input resistance is left out, as on paper."""
-    rows = [row for row in subject.hand.nodes if row.in_path] if subject.hand else []
+    rows = [row for row in reviewed.hand.nodes if row.in_path] if reviewed.hand else []
     found = []
     for one in worked:
         if one.slip == INPUT_LEFT_OUT:
@@ -347,13 +350,13 @@ def _by_stage(subject: Subject, worked: Sequence[SlipWorked], gain: float) -> li
     return found
 
 
-def _two_pi(claim: Claim, beside: Beside, subject: Subject) -> list[Candidate]:
+def _two_pi(claim: Claim, beside: Beside, reviewed: Reviewed) -> list[Candidate]:
     """2π forgotten: rad/s for Hz, or a time constant from 1/f."""
     if beside.unit not in ("Hz", "s"):
         return []
     values = [value for value in (beside.exact, beside.hand) if value]
-    if subject.hand is not None:
-        values += [row.hz for row in subject.hand.methods if row.edge == claim.key and row.hz]
+    if reviewed.hand is not None:
+        values += [row.hz for row in reviewed.hand.methods if row.edge == claim.key and row.hz]
     return [
         Candidate("two-pi", f"the factor 2π {how}", value * factor)
         for value in values
@@ -361,27 +364,27 @@ def _two_pi(claim: Claim, beside: Beside, subject: Subject) -> list[Candidate]:
     ]
 
 
-def _series(claim: Claim, subject: Subject) -> list[Candidate]:
+def _series(claim: Claim, reviewed: Reviewed) -> list[Candidate]:
     """Parallel for series and the other way round, one pair at a time, at the node's own branches."""
-    row = _row(claim, subject) if claim.kind == "node" else None
-    if row is None or claim.key not in ("resistance", "time_constant") or subject.hand is None:
+    row = _row(claim, reviewed) if claim.kind == "node" else None
+    if row is None or claim.key not in ("resistance", "time_constant") or reviewed.hand is None:
         return []
-    circuit = drawn(subject.bands, subject.devices, second=row.second)
+    circuit = drawn(reviewed.bands, reviewed.devices, second=row.second)
     own = {resistor.name for resistor in circuit.resistors if _OWN.fullmatch(resistor.name)}
     scale = 1.0 if claim.key == "resistance" else row.time_constant_s / row.resistance_hand_ohm
-    wrong = series_slips(circuit, row.lines[0].at, own, bias_network(subject.bands, circuit))
+    wrong = series_slips(circuit, row.lines[0].at, own, bias_network(reviewed.bands, circuit))
     return [Candidate("parallel-for-series", says, ohm * scale) for says, ohm in wrong]
 
 
-def _device_slips(claim: Claim, subject: Subject) -> list[Candidate]:
+def _device_slips(claim: Claim, reviewed: Reviewed) -> list[Candidate]:
     """gm = I_C/V_T and r_π = β·V_T/I_C with a round V_T; f_T in rad/s."""
-    device = next((one for one in subject.devices if fold(one.name) == fold(claim.name)), None)
+    device = next((one for one in reviewed.devices if fold(one.name) == fold(claim.name)), None)
     if claim.kind != "device" or device is None:
         return []
     figures = dict(device.figures)
     found: list[Candidate] = []
     for millivolt in (25, 26):
-        ratio = thermal_voltage(subject.temperature_c) / (1e-3 * millivolt)
+        ratio = thermal_voltage(reviewed.temperature_c) / (1e-3 * millivolt)
         says = f"V_T taken as {millivolt} mV"
         values = {"gm": [figures.get("gm", math.nan) * ratio], "r_pi": [figures.get("r_pi", math.nan) / ratio]}
         if "i_c" in figures and "gm" in figures:
