@@ -8,24 +8,41 @@ from __future__ import annotations
 from collections.abc import Callable
 from pathlib import Path
 
+import numpy as np
 import pytest
 from msgspec.structs import replace
 
 import boards
-from tauledger.circuit import Circuit
+from compensated import TwoStages, network_of
+from tauledger.asked import Asked
+from tauledger.circuit import Circuit, Port
 from tauledger.devices import gummel_poon
 from tauledger.devices.catalogue import linearise
 from tauledger.devices.family import Linearised
-from tauledger.devices.parts import Part
+from tauledger.devices.parts import (
+    Part,
+    capacitance,
+    inductance,
+    mutual_inductance,
+    resistance,
+    voltage_source,
+)
 from tauledger.engine.client import Engine
 from tauledger.errors import NetworkError
 from tauledger.hand.equivalent import Capacitor, EquivalentCircuit
 from tauledger.hand.estimate import MillerTerm
 from tauledger.hand.miller import miller_term
+from tauledger.network import lines, reactances, return_ratio
+from tauledger.network.angle import Angle
 from tauledger.network.assemble import Network, Triplets
-from tauledger.network.bands import Bands
+from tauledger.network.bands import Bands, classify
 from tauledger.network.constants import OpenConstants, open_constants
-from tauledger.network.solve import Complex, Solution, solve
+from tauledger.network.edges import find_edges
+from tauledger.network.identities import Identity, check, share_identities
+from tauledger.network.midband import find_midband
+from tauledger.network.return_ratio import at_source, checked
+from tauledger.network.shares import find_shares
+from tauledger.network.solve import Complex, Real, Solution, on_axis, solve
 from tauledger.pipeline import review, review_network
 from tauledger.solution import Bias
 
@@ -51,6 +68,20 @@ CL c 0 22p
 .model pshift pnp (is=8e-15 bf=120 vaf=60 rb=150 re=6 rc=12 cje=12p cjc=5p xcjc=0.6 cjs=7p tf=500p xtf=3 vtf=4 itf=0.1)
 .ac dec 10 10 1g
 .print ac v(c)
+.end
+"""
+
+# The line is long enough to turn the phase within the band.
+LEAD = """River-level gauge, lead of the cable driver
+VIN in 0 AC 1
+RS in near 33
+CN near 0 15p
+{card}
+RL out 0 1k
+CL out 0 20p
+.model coax ltra (r=0.4 l=375n c=66.7p len=4)
+.ac dec 20 10k 1g
+.print ac v(out)
 .end
 """
 
@@ -163,3 +194,83 @@ def test_mutant_weight_one_for_decoupling(engine: Engine, monkeypatch: pytest.Mo
     monkeypatch.setattr("tauledger.explain.open_constants", faulty)
     with pytest.raises(NetworkError, match="weight of"):
         review(FIXTURES / "echo_preamp.cir", engine=engine)
+
+
+def test_mutant_phase_margin_with_the_wrong_sign_of_the_phase(monkeypatch: pytest.MonkeyPatch) -> None:
+    """180° − φ in place of 180° + φ: what poles and zeros use is not what the margin leaves."""
+    network, sound = network_of(TwoStages()), Angle.beyond_midband
+    assert review_network(network).phase_budget is not None
+    monkeypatch.setattr(Angle, "beyond_midband", lambda angle, hz, h: -sound(angle, hz, h))
+    with pytest.raises(NetworkError, match="degrees of poles and zeros add to the phase used"):
+        review_network(network)
+
+
+def test_mutant_return_ratio_of_a_source_with_the_wrong_sign(monkeypatch: pytest.MonkeyPatch) -> None:
+    network, s = boards.common_source_400_mhz(), on_axis(np.array([1e6, 3e8]))
+    opening, sound = at_source(network, [part for part in network.parts if part.label == "gm"]), return_ratio._control
+    h = solve(network, s).response
+    assert checked(opening, s, h) < 1e-9
+    monkeypatch.setattr(return_ratio, "_control", lambda opening, s: -sound(opening, s))
+    with pytest.raises(NetworkError, match="ratio of determinants"):
+        checked(opening, s, h)
+
+
+def test_mutant_return_ratio_of_a_wire_with_the_wrong_sign(engine: Engine, monkeypatch: pytest.MonkeyPatch) -> None:
+    """v₁ − i₁ in place of v₁ + i₁: ngspice's own double injection says something else."""
+
+    def error() -> float:
+        found = review(FIXTURES / "series_shunt.cir", engine=engine, asked=Asked(loops=("Q1.emitter",)))
+        loop = next(one for one in found.loops if one.loop == "Q1.emitter")
+        assert loop.return_ratio_simulated is not None
+        return abs(abs(complex(loop.return_ratio_real, loop.return_ratio_imag)) / loop.return_ratio_simulated - 1.0)
+
+    sound = return_ratio._driven
+
+    def faulty(network: Network, right: Real, s: Complex) -> Complex:
+        answer = sound(network, right, s)
+        return answer if right.ndim == 1 else answer * np.array([1.0, -1.0])[:, None]
+
+    assert error() < 1e-3
+    monkeypatch.setattr(return_ratio, "_driven", faulty)
+    assert error() > 0.1
+
+
+@pytest.mark.parametrize("card", ["T1 near 0 out 0 z0=75 td=20n", "O1 near 0 out 0 coax"])
+def test_mutant_line_that_answers_before_it_is_asked(
+    card: str, engine: Engine, monkeypatch: pytest.MonkeyPatch, tmp_path: Path
+) -> None:
+    """A delay of the other sign: e^(+γ) for e^(−γ) on the axis."""
+    lead = tmp_path / "lead.cir"
+    lead.write_text(LEAD.format(card=card))
+    assert error_of(lead, engine) < AGREES
+    sound = lines._equations
+    monkeypatch.setattr(lines, "_equations", lambda part, s: tuple(found.conj() for found in sound(part, s)))
+    assert error_of(lead, engine) > AGREES
+
+
+def test_mutant_coupling_that_acts_one_way_in_the_shares(monkeypatch: pytest.MonkeyPatch) -> None:
+    """Coils coupled too loosely to be drawn as a transformer: their shares no longer add up."""
+    network = Network.from_parts(
+        [
+            voltage_source("VIN", "in", "0", 1.0),
+            resistance("RS", "in", "a", 50.0),
+            inductance("L1", "a", "0", 10e-6),
+            mutual_inductance("K1", "L1", "L2", ("a", "0", "out", "0"), 7.4e-6),
+            inductance("L2", "out", "0", 22e-6),
+            *(resistance("RL", "out", "0", 1e3), capacitance("CL", "out", "0", 470e-12)),
+        ],
+        output=Port("out"),
+    )
+    midband = find_midband(network)
+    edges = find_edges(network, midband)
+    assert edges.f_high is not None
+    hz = edges.f_high.hz
+    assert hz is not None
+
+    def identities() -> tuple[Identity, ...]:
+        return share_identities(find_shares(network, midband, hz, classify(network, midband).class_of))
+
+    assert all(identity.holds for identity in identities())
+    monkeypatch.setattr(reactances, "TERMS", {})
+    with pytest.raises(NetworkError, match="shares"):
+        check(identities())
