@@ -8,7 +8,8 @@ import numpy as np
 import pytest
 
 import amplifiers
-from tauledger.devices.parts import Part, capacitance, resistance, transconductance
+from tauledger.circuit import Port
+from tauledger.devices.parts import Part, capacitance, inductance, resistance, transconductance, voltage_source
 from tauledger.network.assemble import Network
 from tauledger.network.bands import Bands, classify, find_midband
 from tauledger.network.constants import midband_inverse, open_constants
@@ -19,6 +20,7 @@ from tauledger.network.lower import short_constants
 from tauledger.network.recompute import scaled
 from tauledger.network.shares import find_shares
 from tauledger.network.spectrum import pole_frequencies
+from tauledger.pipeline import review_network
 
 C_S, C_F, R_F, C_IN = 1e-9, 100e-12, 1e9, 20e-12
 A, R_X, C_X = 1e3, 1e6, 100e-12
@@ -151,3 +153,23 @@ def test_impedance_splits_into_the_poles_below_and_above_mid_band() -> None:
     ):
         expected = complex(np.sum(1.0 / (s - poles[kept])))
         assert complex(np.trace(z @ c)) == pytest.approx(expected, rel=1e-6, abs=0.0)
+
+
+def test_a_gain_that_an_inductor_sets_beside_a_capacitor_is_not_worked_by_hand() -> None:
+    """R·C integrates, gm·L differentiates: flat between 103 kHz and 16 MHz, and nothing is left with L a wire."""
+    parts = [
+        voltage_source("VS", "s", "0", 1.0),
+        resistance("R1", "s", "b", 113e3),
+        capacitance("C1", "b", "0", 13.6e-12),
+        transconductance("G1", ("0", "out"), ("b", "0"), 0.2),
+        inductance("L1", "out", "0", 10e-6),
+        resistance("R2", "out", "0", 1e3),
+    ]
+    network = Network.from_parts(parts, output=Port("out"))
+    midband = find_midband(network)
+    assert abs(midband.gain) == pytest.approx(0.2 * 10e-6 / (113e3 * 13.6e-12), rel=0.02)
+    bands = classify(network, midband)
+    assert bands.gain_setting == {"C1"}
+    assert bands.class_of["L1"] == "short"
+    assert not bands.sound
+    assert review_network(network).nodes == ()

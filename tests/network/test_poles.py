@@ -8,10 +8,11 @@ from hypothesis import given, settings
 
 import amplifiers
 from strategies import networks
+from tauledger.circuit import Port
 from tauledger.devices.parts import Part, capacitance, inductance, resistance, transconductance
 from tauledger.network.assemble import Network
 from tauledger.network.bands import classify, find_midband
-from tauledger.network.poles import cancelled_pairs, find_poles
+from tauledger.network.poles import cancelled_pairs, find_poles, pole_owners
 from tauledger.network.recompute import scaled
 from tauledger.network.spectrum import pole_frequencies
 
@@ -121,3 +122,27 @@ def test_an_amplifier_that_oscillates_is_told_as_unstable() -> None:
     )
     assert not find_poles(regenerative).stable
     assert find_poles(amplifiers.coupled_stage()).stable
+
+
+def test_a_pivot_that_rounding_makes_zero_beside_a_pole_takes_no_owner_away() -> None:
+    """At 2 GHz a coupling capacitor of 59 µF is 10⁶ S, and leaves exactly nothing of what holds its far end."""
+    parts: list[Part] = [
+        resistance("R1", "in", "n1", 1.0 / 0.0001095290251916758),
+        resistance("R2", "n1", "n2", 1.0 / 1.0799136069114471e-05),
+        transconductance("M6", ("n3", "n4"), ("n2", "n4"), 0.012),
+        capacitance("C8", "n3", "0", 3.52e-12),
+        capacitance("C11", "n7", "0", 1e-4),
+        transconductance("M12", ("0", "n6"), ("n5", "n6"), 0.0222),
+        capacitance("C12", "n5", "n6", 8.99e-12),
+        resistance("R13", "n6", "0", 1.0 / 0.002688172043010753),
+        capacitance("C14", "n6", "0", 1.88e-13),
+        capacitance("C15", "n6", "n8", 5.89e-05),
+        resistance("R16", "n8", "0", 1.0 / 7.3529411764705884e-06),
+        capacitance("C19", "n9", "n10", 4.47e-05),
+        resistance("R20", "n10", "0", 1.0 / 0.0014492753623188406),
+    ]
+    network = Network.from_parts(parts, output=Port("n10"))
+    poles = pole_frequencies(network)
+    low, high = pole_owners(network, poles)[-2:]
+    assert low["C15"] == pytest.approx(1.0, abs=1e-6)
+    assert high["C12"] + high["C14"] == pytest.approx(1.0, abs=1e-6)

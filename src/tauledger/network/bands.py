@@ -41,7 +41,7 @@ class Bands(Struct, frozen=True):
     merged: every node of the network → its node in `upper` (nodes joined by short capacitors share one; "0" wins).
     upper: short capacitors merged, open inductors taken out; at `s_mid` it is the mid-band network.
     lower: open capacitors taken out, short inductors merged; for s → ∞ (with class "gain": at s_mid) likewise.
-    sound: the real gain of the mid-band network is within 2 % of |H(f_mid)|; where not, no hand numbers, and where
+    sound: the gain of the mid-band network is within 2 % of |H(f_mid)|; where not, no hand numbers, and where
     the merged network cannot even be built, upper and lower are the whole network.
     """
 
@@ -112,6 +112,8 @@ def classify(network: Network, midband: MidBand) -> Bands:
             break
         class_of[best[0]], error = best[1], errors[best]
         repaired.append(best[0])
+    if setting:
+        error = max(error, _resistive_error(network, midband, class_of))
     merged = merged_nodes(network, class_of)
     try:
         upper, lower = upper_network(network, class_of, merged), lower_network(network, class_of, midband.aids)
@@ -316,6 +318,15 @@ def _gain_error(network: Network, midband: MidBand, class_of: Mapping[str, BandC
             kept = _without_charge(upper.parts, {name for name, kind in class_of.items() if kind == "open"})
             upper, frequency_hz = assemble(tuple(kept), upper.port, upper.amplitudes), midband.frequency_hz
         gain = abs(response(upper, np.array([frequency_hz]))[0])
+    except NetworkError:
+        return float("inf")
+    return float(abs(gain / abs(midband.gain) - 1.0))
+
+
+def _resistive_error(network: Network, midband: MidBand, class_of: Mapping[str, BandClass]) -> float:
+    """Give the error of the gain once short inductors are wires and tuned parts gone too: one of them may set it."""
+    try:
+        gain = abs(response(midband_network(network, class_of), np.array([midband.frequency_hz]))[0])
     except NetworkError:
         return float("inf")
     return float(abs(gain / abs(midband.gain) - 1.0))

@@ -24,7 +24,8 @@ from tauledger.network.spectrum import pole_frequencies, zero_frequencies
 CANCEL_WITHIN = 0.02
 DEFECTIVE = 1e-6
 SAME_ROOT = 1e-6
-BESIDE = 1e-9
+# Where rounding makes a zero pivot of what a large coupling capacitor leaves, the next one further off is taken.
+BESIDE = (1e-9, 3e-9, 1e-8, 1e-7)
 GOLDEN = 0.5 * (np.sqrt(5.0) - 1.0)
 
 
@@ -158,20 +159,23 @@ def pole_owners(network: Network, poles: Complex) -> tuple[dict[str, float], ...
 def _eigenvectors(network: Network, poles: Complex) -> tuple[Complex, Complex]:
     """Give right and left eigenvectors of the pencil at its natural frequencies, (k, n) each, by inverse iteration."""
     c = network.capacitance.dense(network.size)
-    # just beside the pole, so that the matrix keeps an inverse when the pole is exact
-    y = admittance(network, poles * (1.0 + BESIDE))
     # a start without symmetry: C takes equal voltages to nothing
     start = 1.0 + np.mod(np.arange(1, network.size + 1) * GOLDEN, 1.0)
-    right = left = np.broadcast_to(start.astype(complex), (len(poles), network.size))
-    try:
-        for _ in range(3):
-            right = np.linalg.solve(y, (right @ c.T)[..., None])[..., 0]
-            left = np.linalg.solve(y.transpose(0, 2, 1), (left @ c)[..., None])[..., 0]
-            right = right / np.linalg.norm(right, axis=1, keepdims=True)
-            left = left / np.linalg.norm(left, axis=1, keepdims=True)
-    except np.linalg.LinAlgError as error:
-        raise NetworkError("the small-signal network has no unique solution") from error
-    return right, left
+    first = np.broadcast_to(start.astype(complex), (len(poles), network.size))
+    for beside in BESIDE:
+        # just beside the pole, so that the matrix keeps an inverse when the pole is exact
+        y = admittance(network, poles * (1.0 + beside))
+        right = left = first
+        try:
+            for _ in range(3):
+                right = np.linalg.solve(y, (right @ c.T)[..., None])[..., 0]
+                left = np.linalg.solve(y.transpose(0, 2, 1), (left @ c)[..., None])[..., 0]
+                right = right / np.linalg.norm(right, axis=1, keepdims=True)
+                left = left / np.linalg.norm(left, axis=1, keepdims=True)
+        except np.linalg.LinAlgError:
+            continue
+        return right, left
+    raise NetworkError("the small-signal network has no unique solution")
 
 
 def _pole(s: complex, owners: Mapping[str, float], cancelled: bool) -> Pole:
