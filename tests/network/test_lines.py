@@ -12,7 +12,7 @@ from hypothesis import strategies as st
 from amplifiers import DRIVE, network
 from strategies import decades
 from tauledger.circuit import Port
-from tauledger.devices.parts import Part, capacitance, line, resistance, transconductance
+from tauledger.devices.parts import Part, capacitance, line, resistance, transconductance, voltage_source
 from tauledger.errors import InputError
 from tauledger.network.assemble import Network
 from tauledger.network.bands import classify
@@ -27,6 +27,7 @@ from tauledger.network.ripple import followed
 from tauledger.network.shares import Shares, find_shares
 from tauledger.network.solve import DENSE_LIMIT, Complex, Real, log_slope, on_axis, response, solve
 from tauledger.network.unity import find_unity
+from tauledger.pipeline import review_network
 
 ENDS = ("near", "0", "out", "0")
 
@@ -358,3 +359,20 @@ def test_phase_is_followed_as_far_as_it_is_asked_for() -> None:
     turned = -math.degrees(math.atan(2.0 * math.pi * hz * 0.5e-9)) - 360.0 * hz * delay
     assert angle.along(np.array([hz]), h)[0] == pytest.approx(turned, abs=1e-6)
     assert followed(made, edges.angle, hz, 100)[1] < hz
+
+
+def test_a_stub_that_shorts_the_path_at_dc_is_reviewed_by_its_waves_alone() -> None:
+    """The near end is shorted: no signal passes the line as at DC, and so there are neither zeros nor edges of that."""
+    parts = [
+        voltage_source("VS", "s", "0", 1.0),
+        resistance("R1", "s", "a", 600.0),
+        line("T1", ("0", "0", "a", "0"), 0.29e-9, 50.0),
+        transconductance("G1", ("0", "out"), ("a", "0"), 0.01),
+        resistance("R2", "out", "0", 1e3),
+        capacitance("C1", "out", "0", 1e-12),
+    ]
+    found = review_network(Network.from_parts(parts, output=Port("out")))
+    assert found.f_high is not None
+    assert found.f_high.exact_hz is not None
+    assert found.zeros == ()
+    assert found.nodes == ()

@@ -18,6 +18,7 @@ from tauledger.network.midband import MidBand
 from tauledger.network.rank_one import changed_response, places_of_change
 from tauledger.network.reactances import Reactances, reactances
 from tauledger.network.solve import Complex, Real, on_axis
+from tauledger.network.spectrum import passes_signal
 
 SCANNED_BEYOND = 10.0
 
@@ -54,8 +55,11 @@ def without(network: Network, names: frozenset[str]) -> Network:
 def edge_frequencies(network: Network, midband: MidBand) -> EdgeFrequencies:
     """Give the band edges of a changed network, its reference at the unchanged mid-band frequency.
 
+    None where no signal passes there any more.
     Raises NetworkError where the network has no unique solution.
     """
+    if not passes_signal(network, on_axis(midband.frequency_hz)):
+        return EdgeFrequencies(None, None)
     return EdgeFrequencies(*first_crossings(network, at_same_frequency(network, midband)))
 
 

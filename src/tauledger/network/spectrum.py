@@ -23,6 +23,7 @@ WINDOW = 1e3
 OFF_ROUND = 0.7
 SAME = 1e-6
 NEWTON_STEP = 1e-2
+NO_SIGNAL = 1e-14
 _SPREAD = 0.5 * 2.0 ** np.arange(6)
 RESONANCE_OFFSETS = np.concatenate([-_SPREAD[::-1], _SPREAD])
 
@@ -50,13 +51,13 @@ def zero_frequencies(network: Network, poles: Complex) -> Complex:
     defective at infinity and at the origin, where rounding scatters its values; so the zeros at the origin are counted
     by the slope of H, and elsewhere a value counts only where H really vanishes. A zero that lies a million times below
     the lowest pole counts as one at the origin. `poles` (rad/s) sets the range. Delays are left out, and
-    lines taken as at DC, as in the poles.
-    Raises NetworkError where the pencil is singular at every s: no signal reaches the output.
+    lines taken as at DC, as in the poles; none where no signal reaches the output then.
+    Raises NetworkError where the network has no unique solution.
     Source: Rosenbrock, "State-space and multivariable theory", 1970 (system matrix).
     """
     network = replace(at_rest(network), delayed=())
     finite = np.abs(poles[np.abs(poles) > 0.0])
-    if not len(finite):
+    if not len(finite) or not passes_signal(network, 1j * finite):
         return np.zeros(0, dtype=complex)
     n = network.size
     g = np.zeros((n + 1, n + 1), dtype=complex)
@@ -69,6 +70,12 @@ def zero_frequencies(network: Network, poles: Complex) -> Complex:
     bottom = solve(network, np.array([start], dtype=complex))
     at_origin = round(float(log_slope(network, bottom)[0].real)) + int(np.sum(poles == 0.0))
     return in_order(np.concatenate([np.zeros(max(at_origin, 0), dtype=complex), _vanishing(network, found, poles)]))
+
+
+def passes_signal(network: Network, s: Complex) -> bool:
+    """Whether more than rounding of the other unknowns reaches the output at any of these s (k,) in rad/s."""
+    at = solve(network, s)
+    return bool(np.any(np.abs(at.response) > NO_SIGNAL * np.max(np.abs(at.x), axis=1, initial=0.0)))
 
 
 def _vanishing(network: Network, s: Complex, poles: Complex) -> Complex:
