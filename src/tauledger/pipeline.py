@@ -26,7 +26,7 @@ from tauledger.explain import Explanation, explain
 from tauledger.netlist import elaborate, read
 from tauledger.network.assemble import Network
 from tauledger.numbers import Numbers, linearised_at, recompute, solve, solve_network
-from tauledger.record import DevicesTable, Review
+from tauledger.record import DevicesTable, Review, known_hz
 
 if TYPE_CHECKING:
     from tauledger.paper.page import Page
@@ -231,16 +231,12 @@ def _with_page(found: Review, page: Page, numbers: Numbers, explanation: Explana
 
     if not numbers.trusted:
         raise InputError(f"{page.path}: no figure can be checked", "the rebuilt network is not the simulated circuit")
-    edges = {
-        name: (facts.simulated_hz if facts.simulated_hz is not None else facts.exact_hz) if facts else None
-        for name, facts in (("f_high", found.f_high), ("f_low", found.f_low))
-    }
     reviewed = Reviewed(
         bands=numbers.bands,
         devices=numbers.devices,
         hand=explanation.hand,
-        f_high=edges["f_high"],
-        f_low=edges["f_low"],
+        f_high=known_hz(found.f_high),
+        f_low=known_hz(found.f_low),
         gain_unit=found.midband.unit,
         temperature_c=found.temperature_c,
     )

@@ -24,7 +24,7 @@ def document(review: Review = ECHO_PREAMP) -> dict[str, Any]:
 
 
 def test_the_schema_that_ships_is_the_one_of_the_records() -> None:
-    """After a change of record.py write it anew as the docstring of `schema` says."""
+    """After a change of a record write it anew as the docstring of `schema` says."""
     assert files("tauledger.report").joinpath(SCHEMA_FILE).read_text(encoding="utf-8") == schema_text()
 
 

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Iterable, Mapping
 
 import numpy as np
 from msgspec.structs import replace
@@ -11,7 +11,15 @@ from tauledger.circuit import ADDED, Circuit, Passives, fold
 from tauledger.network.altered import AddedCapacitor, SeriesResistor
 
 
-def is_card(circuit: Circuit, name: str) -> bool:
+def free_name(taken: Iterable[str], name: str) -> str:
+    """Give a name that none of those taken is, in any spelling: this one, or it with an X or more behind it."""
+    known = {fold(one) for one in taken}
+    while fold(name) in known:
+        name += "X"
+    return name
+
+
+def is_plain_card(circuit: Circuit, name: str) -> bool:
     """Whether an element is a plain resistor, capacitor or inductor of the circuit."""
     return fold(name) in {fold(one) for one in circuit.passives.name}
 

@@ -13,6 +13,7 @@ from tauledger.answers.stray_rerun import proven
 from tauledger.asked import MeasuredCurve
 from tauledger.network.midband import MidBand
 from tauledger.network.solve import Complex, Real, response
+from tauledger.network.unity import is_ratio
 from tauledger.record import (
     CurveFacts,
     CurveFigure,
@@ -21,6 +22,7 @@ from tauledger.record import (
     EdgeFacts,
     Review,
     StrayFacts,
+    known_hz,
 )
 
 # Common practice: a probe and its calibration are good for so much.
@@ -97,7 +99,7 @@ def compare_curve(found: Review, subject: Subject, curve: MeasuredCurve) -> Curv
         if at_deg is not None and beside.difference_deg is not None
         else None,
         largest_deg_at_hz=None if at_deg is None else float(frequency[at_deg]),
-        figures=_figures(beside, found, midband, level_db, run),
+        figures=_figures(beside, found, midband, level_db, run, ratio=is_ratio(numbers.network)),
         leaves=_leaves(beside, midband),
         rms_db=before,
         fitted_points=int(fitted.sum()),
@@ -126,7 +128,7 @@ def _level(frequency: Real, midband: MidBand, f_high: EdgeFacts | None) -> Mask:
         away = np.abs(np.log10(frequency / midband.frequency_hz))
         near: Mask = away <= LEVEL_DECADES
     else:
-        edge = (f_high.simulated_hz or f_high.exact_hz) if f_high is not None else None
+        edge = known_hz(f_high)
         away = frequency
         near = frequency <= (edge / 10.0 if edge is not None else np.inf)
     return near if near.any() else np.asarray(away == away.min())
@@ -168,18 +170,20 @@ def _crossing(frequency: Real, inside: Real) -> float | None:
     return float(frequency[k - 1] * (frequency[k] / frequency[k - 1]) ** part)
 
 
-def _figures(beside: _Beside, found: Review, midband: MidBand, level_db: float, run: Run) -> tuple[CurveFigure, ...]:
+def _figures(
+    beside: _Beside, found: Review, midband: MidBand, level_db: float, run: Run, *, ratio: bool
+) -> tuple[CurveFigure, ...]:
     """Set band edges and unity gain beside the simulated ones, the level taken out; those that the curve reaches."""
     figures = []
     edge_db = level_db - HALF_POWER_DB
     for name, edge, upwards in (("f_low", found.f_low, False), ("f_high", found.f_high, True)):
         hz = _falls_below(beside, midband, edge_db, run, upwards=upwards)
         if hz is not None:
-            figures.append(CurveFigure(name, hz, _reference_hz(edge)))
-    if found.midband.unit in ("V/V", "A/A") and level_db - beside.offset_db > HALF_POWER_DB:
+            figures.append(CurveFigure(name, hz, known_hz(edge)))
+    if ratio and level_db - beside.offset_db > HALF_POWER_DB:
         unity = _falls_below(beside, midband, beside.offset_db, run, upwards=True)
         if unity is not None:
-            figures.append(CurveFigure("f_unity", unity, _unity(found)))
+            figures.append(CurveFigure("f_unity", unity, known_hz(found.f_unity)))
     return tuple(figures)
 
 
@@ -199,19 +203,6 @@ def _falls_below(beside: _Beside, midband: MidBand, level_db: float, run: Run, *
     fine = frequency[inside] * (frequency[outside] / frequency[inside]) ** part
     off = beside.measured_db - decibels(beside.reference)
     return _crossing(fine, decibels(run(fine)) + off[inside] + part * (off[outside] - off[inside]) - level_db)
-
-
-def _reference_hz(edge: EdgeFacts | None) -> float | None:
-    if edge is None:
-        return None
-    return edge.simulated_hz if edge.simulated_hz is not None else edge.exact_hz
-
-
-def _unity(found: Review) -> float | None:
-    facts = found.f_unity
-    if facts is None:
-        return None
-    return facts.simulated_hz if facts.simulated_hz is not None else facts.exact_hz
 
 
 def _verdict(before: float | None, strays: Sequence[StrayFacts], *, trusted: bool) -> str:

@@ -12,7 +12,7 @@ from msgspec.structs import replace
 
 from tauledger.answers.answer import Subject
 from tauledger.hand.slewing import Slew, slewing
-from tauledger.record import CauseFacts, LargeSignal, Review, SlewFacts
+from tauledger.record import CauseFacts, LargeSignal, Review, SlewFacts, known_hz
 
 SWING_V = 1.0
 
@@ -65,7 +65,7 @@ def _facts(slew: Slew, peak: float) -> SlewFacts:
 
 def _causes(found: Review, slowest: Slew, peak: float) -> tuple[CauseFacts, ...]:
     """Give the causes with this one behind those that tell paper from simulation, before what paper may leave out."""
-    edge = found.f_high.simulated_hz or found.f_high.exact_hz if found.f_high is not None else None
+    edge = known_hz(found.f_high)
     if edge is None:
         return found.causes
     from tauledger.causes.cause import cause_facts

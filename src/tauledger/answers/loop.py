@@ -13,7 +13,7 @@ import numpy as np
 from msgspec import Struct
 from msgspec.structs import replace
 
-from tauledger.answers.answer import Subject
+from tauledger.answers.answer import Subject, restore
 from tauledger.answers.double_injection import injected_ratio
 from tauledger.answers.loop_places import Place, closing_source, find_places, input_source, named_place
 from tauledger.answers.macromodel import amplifier, noise_gain
@@ -37,7 +37,16 @@ from tauledger.network.solve import Real, on_axis, response
 from tauledger.network.spectrum import pole_frequencies
 from tauledger.numbers import Numbers
 from tauledger.quantity import engineering
-from tauledger.record import AmplifierFacts, LoopCurve, LoopEstimate, LoopFacts, LoopNodeFacts, LoopStageFacts, Review
+from tauledger.record import (
+    AmplifierFacts,
+    LoopCurve,
+    LoopEstimate,
+    LoopFacts,
+    LoopNodeFacts,
+    LoopStageFacts,
+    Review,
+    known_hz,
+)
 
 AROUND = np.array([0.97, 0.985, 1.0, 1.015, 1.03])
 CHECKED_AT = np.array([0.1, 1.0, 10.0])
@@ -73,9 +82,7 @@ def with_loops(found: Review, subject: Subject, asked: Sequence[str]) -> Review:
     if not places:
         return found
     taken = [_loop(found, subject, place, alone=len(places) == 1) for place in places]
-    if subject.engine is not None and numbers.circuit is not None:
-        # the engine is to answer for the circuit of this review again
-        subject.engine.bias(numbers.circuit, ())
+    restore(subject)
     return replace(
         found,
         loops=(*found.loops, *(facts for facts, _ in taken)),
@@ -228,10 +235,9 @@ def _with_noise_gain(facts: LoopFacts, place: Place, at_hz: float) -> LoopFacts:
 
 def _with_estimates(facts: LoopFacts, found: Review, numbers: Numbers, place: Place, shape: LoopShape) -> LoopFacts:
     """Add what T says of f_H, one idea at a time, and why they part."""
-    high = found.f_high
-    if high is None or high.exact_hz is None or shape.f_high_hz is None:
+    high, reference = found.f_high, known_hz(found.f_high)
+    if high is None or high.exact_hz is None or reference is None or shape.f_high_hz is None:
         return facts
-    reference = high.simulated_hz if high.simulated_hz is not None else high.exact_hz
     t = abs(shape.at_reference)
     opening = place.opening
 

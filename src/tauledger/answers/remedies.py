@@ -12,6 +12,7 @@ from collections.abc import Callable, Iterator, Mapping, Sequence
 import numpy as np
 from msgspec import Struct
 
+from tauledger.answers.changed_circuit import free_name
 from tauledger.answers.elements import Element, elements
 from tauledger.answers.figures import MARGINS, Figures, figures_of
 from tauledger.errors import InputError, NetworkError
@@ -275,7 +276,7 @@ def _of_stage(stage: CompensatedStage, known: Mapping[str, Element], numbers: Nu
     capacitor = known.get(stage.capacitors[0])
     if capacitor is not None and capacitor.free:
         if not stage.r_z:
-            series = SeriesResistor(_free_name(numbers, "RZ"), capacitor.name, 1.0 / stage.gm_2)
+            series = SeriesResistor(free_name(_owners(numbers), "RZ"), capacitor.name, 1.0 / stage.gm_2)
             yield Trial(None, series)
             yield Trial(capacitor)
             yield Trial(capacitor, series)
@@ -297,7 +298,7 @@ def _across(stage: CompensatedStage, numbers: Numbers) -> Iterator[Trial]:
     ends = stage.output_name, stage.input_name
     if any("'" in end or end not in network.unknowns[: network.n_nodes] for end in ends):
         return
-    added = AddedCapacitor(_free_name(numbers, "CX"), *ends, LEAST_ACROSS * stage.across)
+    added = AddedCapacitor(free_name(_owners(numbers), "CX"), *ends, LEAST_ACROSS * stage.across)
     one = Element(added.name, added.name, ends, added.farad, "F", 1.0, True, False)
     yield Trial(one, added=added)
 
@@ -313,11 +314,8 @@ def _load(stage: CompensatedStage, known: Mapping[str, Element], numbers: Number
     return max(loads, key=lambda one: one.value, default=None)
 
 
-def _free_name(numbers: Numbers, name: str) -> str:
-    taken = {part.owner.casefold() for part in numbers.network.parts}
-    while name.casefold() in taken:
-        name += "X"
-    return name
+def _owners(numbers: Numbers) -> set[str]:
+    return {part.owner for part in numbers.network.parts}
 
 
 def _effects(quantity: str, found: Review, numbers: Numbers) -> Mapping[str, float]:

@@ -7,7 +7,7 @@ import math
 from msgspec.structs import replace
 
 from tauledger.answers.answer import Subject, restore
-from tauledger.answers.changed_circuit import changed_circuit, is_card
+from tauledger.answers.changed_circuit import changed_circuit, is_plain_card
 from tauledger.answers.figures import QUANTITIES, Figures, figures_of, simulated_figure
 from tauledger.answers.phase_budget import paper_roots
 from tauledger.answers.remedies import SMALLER_IS_BETTER, Found, attempt, shortfall, trials
@@ -152,7 +152,7 @@ def _by_ngspice(outcome: Found, want: Want, subject: Subject) -> tuple[float | N
         return None, ""
     changed = [one for one in (element, outcome.trial.twin) if one is not None]
     added = outcome.trial.added
-    if any(one.moves_bias or not (added or is_card(numbers.circuit, one.name)) for one in changed):
+    if any(one.moves_bias or not (added or is_plain_card(numbers.circuit, one.name)) for one in changed):
         return None, "by algebra alone, all else held"
     values = {one.name: one.value * outcome.factor for one in changed}
     circuit = changed_circuit(numbers.circuit, values, outcome.trial.series, added)

@@ -30,6 +30,7 @@ from tauledger.record import (
     Review,
     Stage,
     Step,
+    known_hz,
 )
 
 # ln 9 / 2π: 10-90 % rise time of one pole times its -3 dB frequency
@@ -142,14 +143,8 @@ def _edge_facts(name: EdgeName, numbers: Numbers, explanation: Explanation) -> E
     )
 
 
-def _reference(edge: EdgeFacts | None) -> float | None:
-    if edge is None:
-        return None
-    return edge.simulated_hz if edge.simulated_hz is not None else edge.exact_hz
-
-
 def _estimates(name: EdgeName, edge: EdgeFacts | None, explanation: Explanation) -> tuple[Estimate, ...]:
-    reference = _reference(edge)
+    reference = known_hz(edge)
     methods = explanation.hand.methods if explanation.hand else ()
     estimates = [
         Estimate(name, row.method, row.hz, _difference(row.hz, reference), row.recommended)

@@ -23,7 +23,7 @@ def to_json(review: Review) -> bytes:
 def schema() -> dict[str, Any]:
     """Give the JSON schema of the document, from the records themselves.
 
-    It ships as `review.schema.json`; after a change of record.py write it anew with `python -c "from
+    It ships as `review.schema.json`; after a change of a record write it anew with `python -c "from
     tauledger.report.json import schema_text; print(schema_text(), end='')"`.
     """
     found = msgspec.json.schema(Review)
