@@ -9,7 +9,7 @@ from hypothesis import given, settings
 import amplifiers
 from strategies import networks
 from tauledger.circuit import Port
-from tauledger.devices.parts import Part, capacitance, current_source, inductance, resistance, voltage_source
+from tauledger.devices.parts import Part, capacitance, current_source, inductance, line, resistance, voltage_source
 from tauledger.errors import NetworkError
 from tauledger.network import solve as module
 from tauledger.network.assemble import Network, incidence
@@ -134,3 +134,16 @@ def test_an_output_that_no_part_touches_and_a_name_used_twice_are_errors() -> No
         Network.from_parts([r], output=Port("", kind="current", through="V9"))
     with pytest.raises(NetworkError, match="two parts of one name: R"):
         amplifiers.network(r, r, output="in")
+
+
+def test_where_a_line_leaves_no_full_number_the_slope_is_without_end() -> None:
+    parts = [
+        voltage_source("VS", "in", "0", 1.0),
+        line("T1", ("in", "0", "out", "0"), 2.84e-9, 0.0, 1e3),
+        resistance("RL", "out", "0", 1e3),
+    ]
+    network = Network.from_parts(parts, output=Port("out"))
+    # √(2π·f·RC/2) nepers: 670 at 50 THz, 733 at 60 THz, where e^-733 is no full number any more
+    slope = log_slope(network, solve(network, on_axis(np.array([1e12, 5e13, 6e13, 1e15])))).real
+    assert slope[:2] == pytest.approx(-np.sqrt(np.pi * np.array([1e12, 5e13]) * 2.84e-9) / 2.0, rel=0.02)
+    assert np.all(slope[2:] == -np.inf)

@@ -28,6 +28,7 @@ Real = NDArray[np.float64]
 Complex = NDArray[np.complex128]
 
 MOST_ENTRIES = 2_000_000
+LEAST = float(np.finfo(float).tiny / np.finfo(float).eps)
 
 
 class Solution(Struct, frozen=True):
@@ -85,11 +86,14 @@ def on_axis(frequency_hz: Real | float) -> Complex:
 def log_slope(network: Network, solution: Solution) -> Complex:
     """Give d ln H / d ln s = −λᵀ(s·dY/ds)x / H at every s (k,).
 
-    On the axis its real part is d ln|H| / d ln f, and its imaginary part d arg H / d ln f in radian.
+    On the axis its real part is d ln|H| / d ln f, and its imaginary part d arg H / d ln f in radian. Where H is so
+    small that it is no full number any more, as far beyond the edge of a line of R and C, it is −∞.
     Source: adjoint sensitivity, Director and Rohrer, "The generalized adjoint network and network sensitivities",
     IEEE Trans. Circuit Theory CT-16(3), 1969.
     """
-    return np.asarray(-solution.s * slope_moment(network, solution) / solution.response, dtype=np.complex128)
+    lost = np.abs(solution.response) < LEAST
+    slope = -solution.s * slope_moment(network, solution) / np.where(lost, 1.0, solution.response)
+    return np.asarray(np.where(lost, -np.inf, slope), dtype=np.complex128)
 
 
 def _output(network: Network, x: Complex) -> Complex:
