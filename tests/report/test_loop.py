@@ -260,3 +260,19 @@ def test_a_node_that_takes_more_than_the_sum_is_said_to_do_so() -> None:
     assert "which is more than the sum over all nodes" in told
     assert "A negative R·C" in budget(review).note
     assert "A negative R·C" not in budget(ECHO_PREAMP).note
+
+
+def asked(review: Review) -> dict[str, str]:
+    return {one.question: one.answer for one in answers(review)}
+
+
+def test_whether_a_found_loop_is_stable_is_answered_from_the_poles_and_its_margins() -> None:
+    question = "Is the feedback loop stable?"
+    assert question not in asked(ECHO_PREAMP)
+    looped = replace(ECHO_PREAMP, loops=(WIRE,))
+    answer = asked(looped)[question]
+    assert answer.startswith("Yes, all poles of the closed circuit decay: phase margin 61.9° at 1.001 MHz")
+    assert "gain margin 14.1 dB at 5.000 MHz" in answer
+    growing = replace(ECHO_PREAMP.poles[0], real_hz=2e3, imag_hz=0.0)
+    assert asked(replace(looped, poles=(growing,)))[question].startswith("No: a pole at 2.000 kHz")
+    assert "Yes" not in asked(replace(looped, poles=()))[question]

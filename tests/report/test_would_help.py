@@ -26,9 +26,23 @@ def told(review: Review) -> str:
 
 def test_the_answer_names_one_of_each_kind_with_its_cost() -> None:
     answer = told(HELPED)
-    assert "CL +3.0 % (to 598.2 kHz, recomputed; gain unchanged; leaves the bias alone)" in answer
-    assert "RC +7.1 % (to first order; gain -8.1 %; moves the bias too)" in answer
-    assert "C_μ of Q1 +6.4 % (to first order; gain unchanged; in a device)" in answer
+    assert "of those that leave the bias alone: CL +3.0 % (to 598.2 kHz, recomputed; gain unchanged)" in answer
+    assert "of those that move it: RC +7.1 % (to first order; gain -8.1 %)" in answer
+    assert "inside a device: C_μ of Q1 +6.4 % (to first order; gain unchanged)" in answer
+
+
+def test_where_the_best_costs_gain_the_best_that_does_not_is_told_too() -> None:
+    costly = replace(LOAD, name="RF", owner="RF", f_high=0.08, f_high_rerun_hz=None, gain=-0.09)
+    answer = told(replace(ECHO_PREAMP, helps=(costly, LOAD)))
+    assert "leave the bias alone: RF +8.0 % (to first order; gain -9.0 %); with the gain unchanged: CL +3.0 %" in answer
+
+
+def test_a_column_that_says_nothing_is_left_out() -> None:
+    dc = replace(HELPED, helps=tuple(replace(one, f_low=None, f_low_rerun_hz=None) for one in HELPED.helps))
+    assert [column.head for column in what_would_help(HELPED).columns][2:4] == ["f_H", "f_L"]
+    grid = what_would_help(dc)
+    assert [column.head for column in grid.columns] == ["10 % less of", "value", "f_H", "gain"]
+    assert all(len(row.cells) == 4 for row in grid.rows)
 
 
 def test_what_hardly_helps_is_not_named() -> None:

@@ -56,9 +56,9 @@ def headline(review: Review) -> str:
     pair = _pair_at_the_edge(review)
     parts = _largest_shares(review)
     if pair is not None:
-        owners = f" of {', '.join(parts)}" if parts else ""
-        quality = f", Q {pair.q:.2g}" if pair.q is not None else ""
-        return f"{said}; a complex pair at {number(pair.f0_hz, 'Hz', 3)}{quality}{owners} sets the upper edge."
+        quality = f" with Q {pair.q:.2g}" if pair.q is not None else ""
+        through = f", above all through {' and '.join(parts)}" if parts else ""
+        return f"{said}; the upper edge is set by a complex pair at {number(pair.f0_hz, 'Hz', 3)}{quality}{through}."
     through = f", above all through {parts[0]}" if parts else ""
     return f"{said}; the upper edge is set at {_at(node)}{through}."
 

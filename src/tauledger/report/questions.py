@@ -11,6 +11,7 @@ from tauledger.report.headline import limiting_node, line_at_the_edge, unity_sho
 from tauledger.report.lower import ends, in_parallel
 from tauledger.report.sentences import believed, plain, sentence
 from tauledger.report.tables.helps import change, kind
+from tauledger.report.tables.roots import stable_as_drawn
 from tauledger.report.tables.upper import places, term_seconds, whole_s
 from tauledger.report.tables.way import method_title
 from tauledger.report.unity import decibels, degrees, margins, signed
@@ -19,6 +20,7 @@ from tauledger.report.wording import (
     amount,
     fraction,
     move,
+    network_rejected,
     nominal,
     number,
     part_title,
@@ -30,6 +32,11 @@ from tauledger.report.wording import (
 
 # Effects on an edge below one, and on the gain below the other, are no help and no cost.
 WORTH_TELLING, UNSEEN = 0.005, 5e-4
+GROUPS = (
+    ("free", "of those that leave the bias alone"),
+    ("bias", "of those that move it"),
+    ("device", "inside a device"),
+)
 
 
 class Answer(Struct, frozen=True):
@@ -52,6 +59,7 @@ def answers(review: Review) -> tuple[Answer, ...]:
         told.append(Answer("What sets the lower edge?", lower))
     if unity_shown(review):
         told.append(Answer("Is it stable, closed around with a gain of 1?", _is_it_stable(review)))
+    told += [Answer("Is the feedback loop stable?", said) for said in _is_the_loop_stable(review)]
     agrees = _does_paper_agree(review)
     if agrees:
         told.append(Answer("Does paper agree?", agrees))
@@ -68,9 +76,11 @@ def _is_it_stable(review: Review) -> str:
     assert facts is not None
     margin, gain_margin = margins(facts)
     hz = facts.simulated_hz if facts.simulated_hz is not None else facts.exact_hz
-    said = f"{degrees(margin)} of phase are left at {number(hz, 'Hz')}"
+    # where |H| is 1 again farther up, the margin alone does not tell
+    yes = "Yes: a" if margin is not None and not facts.further_hz else "A"
+    said = f"{yes} phase margin of {degrees(margin)} is left at {number(hz, 'Hz')}"
     if gain_margin is not None:
-        said += f"; where all of it is used up the gain is {decibels(gain_margin)} below 1"
+        said += f" and a gain margin of {decibels(gain_margin)}"
     if margin is not None and margin <= 0.0:
         said = f"No: the phase is {degrees(-margin)} beyond half a turn at {number(hz, 'Hz')}"
     cards = [one for one in facts.elements if one.free]
@@ -78,8 +88,32 @@ def _is_it_stable(review: Review) -> str:
         most = max(cards, key=lambda one: abs(one.phase_margin_deg))
         of = part_title(most.name, most.owner)
         change = signed(-10.0 * most.phase_margin_deg, "°")
-        said += f"; 10 % less of {of} changes the margin by {change} and f_u by {move(0.1 * most.f_unity)}"
+        said += f"; 10 % less of {of} changes the phase margin by {change} and f_u by {move(0.1 * most.f_unity)}"
     return f"{said}."
+
+
+def _is_the_loop_stable(review: Review) -> tuple[str, ...]:
+    """Say of a feedback loop that was found whether all poles decay, and its margins; nothing without a loop."""
+    facts = next((loop for loop in review.loops if loop.found), None)
+    if facts is None or network_rejected(review):
+        return ()
+    growing = next((pole for pole in review.poles if pole.real_hz > 0.0), None)
+    if growing is not None:
+        size = math.hypot(growing.real_hz, growing.imag_hz)
+        return (f"No: a pole at {number(size, 'Hz')} lies in the right half-plane and grows.",)
+    margin, hz = facts.phase_margin_simulated_deg, facts.crossover_simulated_hz
+    if margin is None or hz is None:
+        margin, hz = facts.phase_margin_deg, facts.crossover_hz
+    if margin is None:
+        return ()
+    said = f"phase margin {degrees(margin)} at {number(hz, 'Hz')}, where |T| = 1"
+    simulated = facts.gain_margin_simulated_db
+    gain_margin = facts.gain_margin_db if simulated is None else simulated
+    if gain_margin is not None:
+        said += f"; gain margin {gain_margin:.1f} dB at {number(facts.gain_margin_at_hz, 'Hz')}"
+    if stable_as_drawn(review):
+        return (f"Yes, all poles of the closed circuit decay: {said}.",)
+    return (f"{said[:1].upper()}{said[1:]}.",)
 
 
 def _what_limits(review: Review) -> str:
@@ -207,18 +241,21 @@ def _what_helps_most(review: Review, exact: float) -> str:
         rerun = change(one.f_high_rerun_hz, exact)
         return (one.f_high or 0.0) if rerun is None else rerun
 
-    told = []
-    for which, said in (("free", "leaves the bias alone"), ("bias", "moves the bias too"), ("device", "in a device")):
-        best = max(
-            (one for one in review.helps if kind(one) == which and one.f_high),
-            key=effect_of,
-            default=None,
-        )
-        if best is None or effect_of(best) < WORTH_TELLING:
-            continue
-        rerun = change(best.f_high_rerun_hz, exact)
-        effect, gain = (best.f_high, best.gain) if rerun is None else (rerun, best.gain_rerun)
-        how = "to first order" if rerun is None else f"to {number(best.f_high_rerun_hz, 'Hz')}, recomputed"
+    def told_of(one: Help) -> str:
+        rerun = change(one.f_high_rerun_hz, exact)
+        effect, gain = (one.f_high, one.gain) if rerun is None else (rerun, one.gain_rerun)
+        how = "to first order" if rerun is None else f"to {number(one.f_high_rerun_hz, 'Hz')}, recomputed"
         cost = f"gain {move(gain)}" if abs(gain or 0.0) >= UNSEEN else "gain unchanged"
-        told.append(f"{part_title(best.name, best.owner)} {move(effect)} ({how}; {cost}; {said})")
-    return f"10 % less of one element raises f_H: {', '.join(told)}." if told else ""
+        return f"{part_title(one.name, one.owner)} {move(effect)} ({how}; {cost})"
+
+    told = []
+    for which, said in GROUPS:
+        group = [one for one in review.helps if kind(one) == which and effect_of(one) >= WORTH_TELLING]
+        best = max(group, key=effect_of, default=None)
+        if best is None:
+            continue
+        told.append(f"{said}: {told_of(best)}")
+        keeps = [one for one in group if abs(one.gain or 0.0) < UNSEEN]
+        if which == "free" and best not in keeps and keeps:
+            told.append(f"with the gain unchanged: {told_of(max(keeps, key=effect_of))}")
+    return f"f_H rises with 10 % less of one element. Best {'; '.join(told)}." if told else ""

@@ -16,9 +16,12 @@ TERMS = {
         "belongs to its terminal."
     ),
     "R": (
-        "the resistance that a capacitance at the node faces, looking into everything connected there. Behind the "
-        "series resistance of a transistor’s base, collector or emitter it is another than at the node outside; the "
-        "rows “at …” say which place it belongs to."
+        "the resistance that a capacitance at the node faces, looking into everything connected there; R by hand by "
+        "the rules of paper, R exact that of the network."
+    ),
+    "R inside a device": (
+        "behind the series resistance of a transistor’s base, collector or emitter R is another than at the node "
+        "outside; the rows “at …” say which place it belongs to."
     ),
     "Time constant": "R·C of one node. The larger it is, the lower the frequency where the node stops following.",
     "Miller factor": (
@@ -42,8 +45,8 @@ TERMS = {
         "the lower edges, and a₂/a₁ the second pole. They have nothing to do with nodes called a1 or b1."
     ),
     "σ": (
-        "how strongly the capacitances load each other: 1 means not at all, a small number that the poles "
-        "have moved far apart."
+        "how the capacitances act on each other: 1 means not at all, a small number that the poles have moved far "
+        "apart, a large one that they have moved together, then into a complex pair."
     ),
     "Pole, zero": (
         "where the slope of the gain changes, going up in frequency: by 20 dB a decade downwards at each pole, upwards "
@@ -64,9 +67,9 @@ TERMS = {
         "a transcapacitance: base-emitter charge that follows the base-collector voltage, because the transit time "
         "does. It is no capacitance between two nodes, so paper leaves it out; it may be negative."
     ),
-    "gm, g_mb, r_o, C_gs, C_gd, f_T": (
-        "transconductance from gate and from body, output resistance, gate-source and gate-drain capacitance, and the "
-        "frequency where the current gain is one."
+    "gm, g_mb, r_o, C_gs, C_gd, C_db, C_sb, f_T": (
+        "transconductance from gate and from body, output resistance, capacitance between gate and source, gate and "
+        "drain, drain and body, source and body, and the frequency where the current gain is one."
     ),
     "Return ratio": (
         "what comes back to a source, or past a wire, for one unit that it sends out. T large: the "

@@ -36,7 +36,9 @@ def number(value: float | None, unit: str, digits: int = 4) -> str:
     if value is None:
         return NO_NUMBER
     if unit in _RATIOS:
-        return f"{value:.{digits}g} {unit}".rstrip()
+        # five digits and more stand in full: 23820 V/V, not a power of ten
+        plain = f"{float(f'{value:.{digits}g}'):.0f}" if 1e4 <= abs(value) < 1e7 else f"{value:.{digits}g}"
+        return f"{plain} {unit}".rstrip()
     return engineering(value, _UNITS.get(unit, unit), digits)
 
 
@@ -168,7 +170,7 @@ def group_delay(review: Review) -> str:
 
 def by_loop(review: Review) -> str:
     """Say what the mark of a resistance by loop or branch form means; inside a feedback loop such rows only rank."""
-    told = "R0/(1 + T) or branches by 1 − K, with T and K of the solved network"
+    told = "R0/(1 + T), the loop through it counted, or branches by 1 − K; T and K are of the solved network"
     if any(facts.found for facts in review.loops):
         told += "; divided by 1 + T of the feedback loop R·C ranks nodes, but f_H follows from the loop"
     return told

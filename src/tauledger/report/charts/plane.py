@@ -14,8 +14,9 @@ if TYPE_CHECKING:
     from matplotlib.axes import Axes
 
 INNERMOST = 0.6
-# Marks closer than this part of the picture have no room for both their names side by side.
-CLOSE = 0.035
+# A name takes so much of the picture's width for each letter, and so much again to keep from the next; one that has no
+# room goes up a line, in points.
+LETTER, LINE = 0.0125, 11
 
 
 def plane_chart(review: Review) -> str:
@@ -62,7 +63,7 @@ def plane_chart(review: Review) -> str:
                 )
         axes.axhline(0.0, color=light("muted"), linewidth=0.8)
         axes.axvline(0.0, color=light("muted"), linewidth=0.8)
-        _marks(axes, placed, close=CLOSE * span)
+        _marks(axes, placed, letter=LETTER * span)
         axes.set_xlim(-outermost - 0.25, right_edge)
         axes.set_ylim(-half, half)
         axes.set_aspect("equal")
@@ -73,15 +74,18 @@ def plane_chart(review: Review) -> str:
         return to_svg(figure, key="plane", title=f"Poles and zeros in the s-plane: {told}")
 
 
-def _marks(axes: Axes, placed: list[tuple[Root, float, float]], *, close: float) -> None:
+def _marks(axes: Axes, placed: list[tuple[Root, float, float]], *, letter: float) -> None:
     at_origin = [root.name for root, x, y in placed if x == 0.0 and y == 0.0]
-    level, before = 0, None
+    ends: list[float] = []
     for root, x, y in sorted(placed, key=lambda entry: entry[1]):
         if x == 0.0 and y == 0.0 and root.name != at_origin[0]:
             continue
-        level = 1 - level if before is not None and y == 0.0 and x - before < close else 0
-        before = x if y == 0.0 else before
         name = ", ".join(at_origin) if x == 0.0 and y == 0.0 else root.name
+        level = 0
+        if y == 0.0:
+            half = 0.5 * letter * (len(name) + 1)
+            level = next((k for k, end in enumerate(ends) if end <= x - half), len(ends))
+            ends[level : level + 1] = [x + half]
         for height in {y, -y}:
             axes.plot(
                 [x],
@@ -93,5 +97,4 @@ def _marks(axes: Axes, placed: list[tuple[Root, float, float]], *, close: float)
                 color=light("exact" if root.is_pole else "hand"),
                 linestyle="none",
             )
-        upwards = 19 if level else 8
-        axes.annotate(name, (x, y), (0, upwards), textcoords="offset points", ha="center", va="bottom")
+        axes.annotate(name, (x, y), (0, 8 + LINE * level), textcoords="offset points", ha="center", va="bottom")

@@ -27,7 +27,9 @@ def stages_section(review: Review) -> Section:
     """Give the stages with their drawings; where there is no chain, the network of the hand analysis."""
     blocks: list[Block] = [setting.stages(review)] if review.stages else []
     drawn = drawable(review)
-    if drawn:
+    nodes = upper.counting_nodes(review)
+    # a drawing without the node that takes most would say the wrong thing
+    if drawn and (not nodes or nodes[0].name in {stage.node for stage in drawn}):
         caption = (
             "The small-signal circuit of the hand analysis, stage by stage: at every node its resistance and its "
             "capacitances with their Miller part, R_Th the resistance at the input. Gm·v, with Gm = gain over R, gives "
@@ -38,7 +40,7 @@ def stages_section(review: Review) -> Section:
         if len(drawn) == MOST_STAGES < len(review.stages):
             caption += f" Drawn: the first {len(drawn)} nodes of {len(review.stages)}."
         blocks.append(Picture("stages", caption))
-    elif upper.counting_nodes(review):
+    elif nodes:
         blocks.append(upper.equivalent(review))
     return Section("stages", "Stages" if review.stages else "The network of the hand analysis", tuple(blocks))
 
@@ -46,7 +48,7 @@ def stages_section(review: Review) -> Section:
 def devices_section(review: Review) -> Section:
     """Give the operating points."""
     symbols = {figure.symbol for device in review.devices for figure in device.figures}
-    terms = (("r_pi", "gm, r_π, r_o, C_π, C_μ, f_T"), ("c_gs", "gm, g_mb, r_o, C_gs, C_gd, f_T"))
+    terms = (("r_pi", "gm, r_π, r_o, C_π, C_μ, f_T"), ("c_gs", "gm, g_mb, r_o, C_gs, C_gd, C_db, C_sb, f_T"))
     wanted = tuple(term for symbol, term in terms if symbol in symbols)
     return Section("devices", "Devices", setting.devices(review), wanted)
 

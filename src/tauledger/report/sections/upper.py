@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable
 
-from tauledger.record import CauseFacts, Review
+from tauledger.record import CauseFacts, NodeRow, Review
 from tauledger.report.blocks import Block, Folded, Item, Items, Picture, Prose, Section
 from tauledger.report.charts.bars import bars_text
 from tauledger.report.sentences import cause_text
@@ -12,6 +12,11 @@ from tauledger.report.tables import helps, upper, way
 from tauledger.report.tables.working import working
 from tauledger.report.wording import EDGE, fraction, move, withheld
 from tauledger.report.working import node_title
+
+MEASURED = (
+    "Each per cent says how far a cause moves the edge: a better estimate over a simpler one, or the edge with the "
+    "cause over that without it. They need not add up, for causes act on each other."
+)
 
 
 def budget_section(review: Review) -> Section:
@@ -37,8 +42,13 @@ def budget_section(review: Review) -> Section:
         "budget",
         "The time-constant budget of the upper edge",
         tuple(blocks),
-        ("Signal node", "R", "Time constant", "Miller factor", "1 pF more", *_charges(review)),
+        ("Signal node", "R", *_inside(nodes), "Time constant", "Miller factor", "1 pF more", *_charges(review)),
     )
+
+
+def _inside(nodes: Iterable[NodeRow]) -> tuple[str, ...]:
+    """Give the term for rows below a node, where there are any."""
+    return ("R inside a device",) if any(upper.places(node) for node in nodes) else ()
 
 
 def _charges(review: Review) -> tuple[str, ...]:
@@ -90,7 +100,9 @@ def causes_section(review: Review) -> Section:
         return Section("causes", "", ())
     differ = _items([cause for cause in review.causes if not cause.on_paper], review)
     kept = _items([cause for cause in review.causes if cause.on_paper], review)
-    blocks: list[Block] = [Items(differ) if differ else Prose("Nothing of note above 2 %.")]
+    blocks: list[Block] = [Items(differ) if differ else Prose("No cause moves an edge by 2 % or more.")]
+    if differ:
+        blocks.insert(0, Prose(MEASURED))
     if kept:
         blocks += [
             Prose("The figures by hand here take the following into account; paper that leaves it out is off by:"),

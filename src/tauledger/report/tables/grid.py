@@ -5,6 +5,9 @@ from __future__ import annotations
 from typing import Literal
 
 from msgspec import Struct
+from msgspec.structs import replace
+
+from tauledger.report.wording import NO_NUMBER
 
 
 class Column(Struct, frozen=True):
@@ -31,6 +34,17 @@ class Grid(Struct, frozen=True):
     columns: tuple[Column, ...]
     rows: tuple[GridRow, ...]
     note: str = ""
+
+
+def said(grid: Grid) -> Grid:
+    """Give a table without the columns that say nothing in any row; the first stays."""
+    kept = [
+        k for k in range(len(grid.columns)) if not k or any(row.cells[k] not in ("", NO_NUMBER) for row in grid.rows)
+    ]
+    if len(kept) == len(grid.columns):
+        return grid
+    rows = tuple(replace(row, cells=tuple(row.cells[k] for k in kept)) for row in grid.rows)
+    return replace(grid, columns=tuple(grid.columns[k] for k in kept), rows=rows)
 
 
 def columns(first: str, *others: str) -> tuple[Column, ...]:

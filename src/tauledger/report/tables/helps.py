@@ -2,8 +2,10 @@
 
 from __future__ import annotations
 
+from collections.abc import Collection
+
 from tauledger.record import Help, Review
-from tauledger.report.tables.grid import Grid, GridRow, columns
+from tauledger.report.tables.grid import Grid, GridRow, columns, said
 from tauledger.report.wording import move, nominal, number, part_title
 
 MARKS = {"bias": " §", "device": " ¶", "free": ""}
@@ -14,6 +16,16 @@ def kind(one: Help) -> str:
     if one.free:
         return "free"
     return "bias" if one.moves_bias else "device"
+
+
+def marks(kinds: Collection[str]) -> tuple[str, ...]:
+    """Say what the marks at the names of elements mean, those that stand in the table."""
+    told = []
+    if "bias" in kinds:
+        told.append("§ takes part in the operating point: changed on the board it moves that too.")
+    if "device" in kinds:
+        told.append("¶ inside a device: another device or another bias, no change of a value.")
+    return tuple(told)
 
 
 def what_would_help(review: Review) -> Grid:
@@ -28,13 +40,9 @@ def what_would_help(review: Review) -> Grid:
             high = change(one.f_high_rerun_hz, review.f_high.exact_hz if review.f_high else None)
             low = change(one.f_low_rerun_hz, review.f_low.exact_hz if review.f_low else None)
             rows.append(GridRow(("recomputed", "", move(high), move(low), move(one.gain_rerun)), "part"))
-    notes = ["To first order; the operating point is held."]
-    if any(kind(one) == "bias" for one in review.helps):
-        notes.append("§ takes part in the operating point: changed on the board it moves that too.")
-    if any(kind(one) == "device" for one in review.helps):
-        notes.append("¶ inside a device: another device or another bias, no change of a value.")
+    notes = ["To first order; the operating point is held.", *marks({kind(one) for one in review.helps})]
     heads = columns("10 % less of", "value", "f_H", "f_L", "gain")
-    return Grid("What 10 % less of one element does", heads, tuple(rows), " ".join(notes))
+    return said(Grid("What 10 % less of one element does", heads, tuple(rows), " ".join(notes)))
 
 
 def change(hz: float | None, before: float | None) -> float | None:

@@ -5,7 +5,7 @@ from __future__ import annotations
 import math
 
 from tauledger.record import LoopFacts, LoopStageFacts
-from tauledger.report.tables.grid import Column, Grid, GridRow
+from tauledger.report.tables.grid import Column, Grid, GridRow, said
 from tauledger.report.wording import NO_NUMBER, move, number
 
 METHODS = {
@@ -169,7 +169,7 @@ def figures(facts: LoopFacts) -> Grid:
     heads = (Column("Return ratio T", "l"), Column("exact"), Column("simulated"))
     rows = tuple(GridRow(cells) for cells in loop_rows(facts))
     caption = title(facts)
-    return Grid(caption[:1].upper() + caption[1:], heads, rows)
+    return said(Grid(caption[:1].upper() + caption[1:], heads, rows))
 
 
 def estimates(facts: LoopFacts) -> Grid:

@@ -23,14 +23,14 @@ def phase_budget(budget: PhaseBudget) -> Grid:
     """Give the poles and zeros with what they use at f_u, those too small to show together, and what is left."""
     *above, left = budget_cells(budget)
     rows = [*(GridRow(cells) for cells in above), GridRow(left, "sum")]
-    heads = columns("pole or zero", "exact", "used", "by hand", "off", "used, by hand")
+    heads = columns("Pole or zero", "exact", "used", "by hand", "off", "used, by hand")
     return Grid(f"Phase used up at {number(budget.at_hz, 'Hz', 4)}", heads, tuple(rows))
 
 
 def by_hand(budget: PhaseBudget) -> Grid:
     """Give f_u and phase margin by hand beside exact."""
     rows = tuple(GridRow(step_cells(step)) for step in budget.by_hand)
-    return Grid("Unity gain by hand", columns("figure", "by hand", "exact", "off"), rows)
+    return Grid("Unity gain by hand", columns("Figure", "by hand", "exact", "off"), rows)
 
 
 def budget_cells(budget: PhaseBudget) -> tuple[Cells, ...]:

@@ -7,7 +7,7 @@ import math
 from msgspec import Struct
 
 from tauledger.record import PoleFacts, Review, ZeroFacts
-from tauledger.report.tables.grid import Column, Grid, GridRow
+from tauledger.report.tables.grid import Column, Grid, GridRow, said
 from tauledger.report.wording import coefficients, move, number, owners_text, part_titles
 
 # Farther than this from the band a root moves nothing that a reader could measure.
@@ -87,8 +87,23 @@ def roots_table(review: Review) -> Grid:
     rest = [len(review.poles) - sum(root.is_pole for root in roots)]
     rest.append(len(review.zeros) - len(roots) + sum(root.is_pole for root in roots))
     words = [f"{many} {word}{'s' * (many != 1)}" for many, word in zip(rest, ("pole", "zero"), strict=True) if many]
-    note = f"Not shown: {' and '.join(words)} that cancel or lie farther off." if words else ""
-    return Grid("Poles and zeros near the band", heads, tuple(rows), note)
+    notes = [f"Not shown: {' and '.join(words)} that cancel or lie farther off."] if words else []
+    if any(root.facts.owners for root in roots if isinstance(root.facts, PoleFacts)):
+        notes.append(
+            "What sets it: the share of a part in the pole; of 50 %, 1 % less of the part moves it up by 0.5 %."
+        )
+    if stable_as_drawn(review):
+        notes.append("All poles lie in the left half-plane: the circuit is stable at this operating point.")
+    return said(Grid("Poles and zeros near the band", heads, tuple(rows), " ".join(notes)))
+
+
+def stable_as_drawn(review: Review) -> bool:
+    """Whether every pole decays; told only where all are known: not with lines, delays or measuring aids."""
+    if any(note.note == "measuring-aids" for note in review.notes):
+        return False
+    known = not any(part.kind == "line" or part.name.endswith(".delay") for part in review.parts)
+    delayed = any(owner.part.endswith(".delay") for pole in review.poles for owner in pole.owners)
+    return known and not delayed and bool(review.poles) and all(pole.real_hz < 0.0 for pole in review.poles)
 
 
 def _near(root: PoleFacts | ZeroFacts, low: float, high: float) -> bool:

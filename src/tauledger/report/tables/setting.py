@@ -6,7 +6,7 @@ import math
 import re
 
 from tauledger.record import DeviceFacts, DriveFacts, OutputFacts, Review
-from tauledger.report.tables.grid import Column, Grid, GridRow
+from tauledger.report.tables.grid import Column, Grid, GridRow, said
 from tauledger.report.tables.upper import counting_nodes, resistors_at
 from tauledger.report.wording import NO_NUMBER, figure_symbols, fraction, group_delay, nominal, number, part_unit
 
@@ -113,9 +113,8 @@ def source_lines(review: Review) -> Grid:
         Column("share of f_H"),
         Column("share of f_L"),
     )
-    return Grid(
-        "Lines of the netlist that matter, and the resistors that make an R of the upper edge", heads, tuple(rows)
-    )
+    caption = "Lines of the netlist that matter, and the resistors that make an R of the upper edge"
+    return said(Grid(caption, heads, tuple(rows)))
 
 
 def _makes(review: Review, owner: str) -> str:
@@ -138,7 +137,7 @@ def versions(review: Review) -> Grid:
     if review.netlist.sha256:
         rows.append(GridRow(("SHA-256 of all files read", review.netlist.sha256)))
     if review.netlist.read_past:
-        rows.append(GridRow(("Cards read past: nothing here rests on them", review.netlist.read_past)))
+        rows.append(GridRow(("Cards that nothing here rests on", review.netlist.read_past)))
     return Grid("Versions", (Column("", "l"), Column("", "l")), tuple(rows))
 
 

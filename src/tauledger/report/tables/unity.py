@@ -2,9 +2,15 @@
 
 from __future__ import annotations
 
+import re
+
 from tauledger.record import UnityFacts
-from tauledger.report.tables.grid import Grid, GridRow, columns
-from tauledger.report.unity import MARKS, again_cells, element_cells, figures, node_cells, remarks
+from tauledger.report.tables.grid import Grid, GridRow, columns, said
+from tauledger.report.tables.helps import marks
+from tauledger.report.unity import again_cells, element_cells, figures, node_cells, remarks
+
+# In a table for reading a mark stands apart from the name, as in all others.
+_MARK = re.compile(r"(?=[§¶]$)")
 
 
 def unity_gain(facts: UnityFacts) -> Grid:
@@ -19,17 +25,17 @@ def who_sets(facts: UnityFacts) -> Grid:
     """Give what 10 % less of every element does to f_u and both margins, the first two computed again."""
     rows = []
     for one in facts.elements:
-        rows.append(GridRow(element_cells(one), part=one.name))
+        title, *cells = element_cells(one)
+        rows.append(GridRow((_MARK.sub(" ", title), *cells), part=one.name))
         if one.f_unity_rerun_hz is not None:
             rows.append(GridRow(("recomputed", *again_cells(one, facts)), "part"))
-    note = "To first order; the operating point is held."
-    if any(not one.free for one in facts.elements):
-        note += f" {MARKS}."
-    heads = columns("10 % less of", "value", "f_u", "margin", "gain margin")
-    return Grid("Who sets f_u and margin", heads, tuple(rows), note)
+    kinds = {"bias" if one.moves_bias else "device" for one in facts.elements if not one.free}
+    note = " ".join(("To first order; the operating point is held.", *marks(kinds)))
+    heads = columns("10 % less of", "value", "f_u", "phase margin", "gain margin")
+    return said(Grid("Who sets f_u and margin", heads, tuple(rows), note))
 
 
 def at_nodes(facts: UnityFacts) -> Grid:
     """Give what 1 pF from a node to ground does to f_u and margin, each computed again."""
     rows = tuple(GridRow(node_cells(node, facts), part=node.node) for node in facts.nodes)
-    return Grid("1 pF to ground, computed again", columns("Node", "f_u", "margin"), rows)
+    return Grid("1 pF to ground, computed again", columns("Node", "f_u", "phase margin"), rows)

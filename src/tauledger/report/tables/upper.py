@@ -76,7 +76,8 @@ def budget(review: Review) -> Grid:
 
 def places(node: NodeRow) -> tuple[WorkingLine, ...]:
     """Give the places that a row is made of where it is more than the node itself: inside a device, and the node."""
-    lines = node.working.lines if node.working is not None else ()
+    every = node.working.lines if node.working is not None else ()
+    lines = tuple(line for line in every if line.capacitances or line.time_constant_s)
     return lines if len(lines) > 1 or any(line.node != node.name for line in lines) else ()
 
 
