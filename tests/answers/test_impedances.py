@@ -11,7 +11,10 @@ import pytest
 
 import boards
 from tauledger.asked import Asked
+from tauledger.circuit import Port
+from tauledger.devices.parts import capacitance, resistance, transresistance, voltage_source
 from tauledger.engine.client import Engine
+from tauledger.network.assemble import Network
 from tauledger.pipeline import review, review_network
 from tauledger.record import ImpedanceFacts, Review
 from tauledger.report.charts.impedance import impedance_chart
@@ -185,3 +188,39 @@ def test_a_network_alone_has_exact_impedances_and_none_simulated() -> None:
         assert all(point.simulated_ohm is None and point.exact_ohm for point in facts.curve)
     lines = [line.text for line in lay_out([impedances(one)], width=80, unicode=True, page=60)]
     assert not any("simulated" in line for line in lines)
+
+
+def test_an_output_that_a_source_forces_has_no_resistance() -> None:
+    parts = [
+        voltage_source("VIN", "s", "0", 1.0),
+        resistance("R1", "s", "a", 1e3),
+        resistance("R2", "a", "b", 33e3),
+        voltage_source("VS", "b", "0"),
+        transresistance("H1", "out", "0", -14.2e3, "VS"),
+        resistance("R3", "out", "0", 574.0),
+        capacitance("C1", "a", "0", 1e-9),
+    ]
+    network = Network.from_parts(parts, output=Port("out"))
+    all_of_them = review_network(network, asked=Asked(impedances=True)).impedances
+    for one in all_of_them:
+        if one.side == "output":
+            assert [(point.real_ohm, point.parallel_ohm) for point in one.points] == [(0.0, 0.0)] * len(one.points)
+    seen = next(one for one in all_of_them if one.side == "input" and one.left_out)
+    assert seen.points[0].parallel_ohm == pytest.approx(33e3, rel=1e-9)
+
+
+def test_a_source_before_a_virtual_short_sees_its_own_resistor_alone() -> None:
+    parts = [
+        voltage_source("VIN", "s", "0", 1.0),
+        resistance("R1", "s", "a", 1e3),
+        voltage_source("VS", "a", "0"),
+        transresistance("H1", "x", "0", -14.2e3, "VS"),
+        resistance("R3", "x", "out", 574.0),
+        capacitance("C1", "out", "0", 1e-9),
+    ]
+    network = Network.from_parts(parts, output=Port("out"))
+    beyond, whole = (
+        one for one in review_network(network, asked=Asked(impedances=True)).impedances if one.side == "input"
+    )
+    assert beyond.points[0].parallel_ohm == 0.0
+    assert whole.points[0].parallel_ohm == pytest.approx(1e3, rel=1e-9)

@@ -27,6 +27,7 @@ from tauledger.network.port_impedance import (
     TEST_CURRENT,
     SourcePort,
     across,
+    admittance_between,
     admittance_of,
     input_admittance,
     output_impedance,
@@ -111,7 +112,12 @@ def _outputs(subject: Subject) -> list[ImpedanceFacts]:
         cases.append((load, f"without {', '.join(load)}"))
     for without, says in cases:
         try:
-            exact = _Curve(*(1.0 / output_impedance(network, hz, without=without) for hz in (at.points, at.grid)))
+            exact = _Curve(
+                *(
+                    admittance_between(1.0, output_impedance(network, hz, without=without))
+                    for hz in (at.points, at.grid)
+                )
+            )
         except NetworkError:
             # nothing but the load gave the output a path for direct current
             continue
@@ -145,14 +151,15 @@ def _simulated_inputs(subject: Subject, port: SourcePort, at: _Frequencies) -> t
     voltage = _run(subject, replace(circuit, output=voltage_port(port)), at)
     sign = 1.0 if port.plus != GROUND else -1.0
     if port.source.kind == "current source":
-        beyond = _Curve(amplitude / (sign * voltage.points), amplitude / (sign * voltage.grid))
+        beyond = _Curve(*(admittance_between(amplitude, sign * one) for one in (voltage.points, voltage.grid)))
         return beyond, beyond
     through = Port(port.source.nodes[0], port.source.nodes[1], "current", port.source.owner)
     current = _run(subject, replace(circuit, output=through), at)
     whole = _Curve(-current.points / amplitude, -current.grid / amplitude)
     if port.series is None:
         return whole, whole
-    return _Curve(-current.points / (sign * voltage.points), -current.grid / (sign * voltage.grid)), whole
+    pairs = ((current.points, voltage.points), (current.grid, voltage.grid))
+    return _Curve(*(admittance_between(-passing, sign * held) for passing, held in pairs)), whole
 
 
 def _simulated_output(subject: Subject, at: _Frequencies) -> _Curve | None:
@@ -165,7 +172,7 @@ def _simulated_output(subject: Subject, at: _Frequencies) -> _Curve | None:
     probe = Element("I", TEST_CURRENT, ends, "", (("dc", 0.0),), ADDED, 0)
     drive = (Drive(TEST_CURRENT, "current", 1.0 + 0.0j),)
     voltage = _run(subject, replace(circuit, elements=(*circuit.elements, probe), drive=drive), at)
-    return _Curve(1.0 / voltage.points, 1.0 / voltage.grid)
+    return _Curve(*(admittance_between(1.0, one) for one in (voltage.points, voltage.grid)))
 
 
 def _run(subject: Subject, circuit: Circuit, at: _Frequencies) -> _Curve:
@@ -234,9 +241,11 @@ def _at(curve: _Curve | None, k: int) -> complex | None:
 
 
 def _parted(y: complex | None, hz: float) -> tuple[float | None, float | None, float | None, float | None]:
-    """Give real and imaginary part of 1/Y in ohm, and R and C of R ‖ C: Y = 1/R + jωC."""
-    if y is None or y == 0.0 or not np.isfinite(y):
+    """Give real and imaginary part of 1/Y in ohm, and R and C of R ‖ C: Y = 1/R + jωC; 0 Ω where Y is infinite."""
+    if y is None or y == 0.0:
         return None, None, None, None
+    if not np.isfinite(y):
+        return 0.0, 0.0, 0.0, None
     z = 1.0 / y
     omega = 2.0 * math.pi * hz
     return z.real, z.imag, 1.0 / y.real if y.real else None, y.imag / omega if omega else None

@@ -14,6 +14,8 @@ from tauledger.network.solve import Complex, Real, on_axis, response, solve
 
 # No netlist can hold an element of this name.
 TEST_CURRENT = "test current"
+# What rounding leaves of nodes that sources hold: no board has a picoohm.
+HELD_OHM = 1e-12
 
 
 class SourcePort(Struct, frozen=True):
@@ -60,8 +62,14 @@ def input_admittance(network: Network, port: SourcePort, frequency_hz: Real, *, 
     ends = (port.source_plus, port.source_minus) if series else (port.plus, port.minus)
     v = x @ incidence(network, *ends)
     if port.source.kind == "voltage source":
-        return np.asarray(-x[:, network.branch(port.source.owner)] / v, dtype=np.complex128)
-    return np.asarray(network.amplitude(port.source) / v, dtype=np.complex128)
+        return admittance_between(-x[:, network.branch(port.source.owner)], v)
+    return admittance_between(network.amplitude(port.source), v)
+
+
+def admittance_between(current: Complex | complex, voltage: Complex) -> Complex:
+    """Give i/v in S, (k,), infinite where sources hold the two nodes: |v/i| is nothing but rounding."""
+    held = np.abs(voltage) <= HELD_OHM * np.abs(current)
+    return np.asarray(np.where(held, np.inf, current / np.where(held, 1.0, voltage)), dtype=np.complex128)
 
 
 def output_impedance(network: Network, frequency_hz: Real, *, without: Collection[str] = ()) -> Complex:
