@@ -6,7 +6,7 @@ import math
 
 from msgspec import Struct
 
-from tauledger.record import Curves, Review
+from tauledger.record import Curves, Review, known_hz
 
 BEYOND = 300.0
 FAR_BELOW = 1e4
@@ -75,19 +75,21 @@ def nearest(frequency_hz: tuple[float, ...], hz: float) -> int:
     return min(range(len(frequency_hz)), key=lambda k: abs(math.log(frequency_hz[k] / wanted)))
 
 
+def unity_shown(review: Review) -> bool:
+    """Whether the report has a section on unity gain."""
+    return review.f_unity is not None and bool(review.f_unity.elements)
+
+
 def unity_hz(review: Review) -> float | None:
     """Give the unity gain frequency where the report has a section on it."""
-    facts = review.f_unity
-    if facts is None or not facts.elements:
-        return None
-    return facts.simulated_hz if facts.simulated_hz is not None else facts.exact_hz
+    return known_hz(review.f_unity) if unity_shown(review) else None
 
 
 def edge_places(review: Review) -> list[tuple[str, float]]:
     """Give the band edges by name in Hz, simulated ones where there are."""
     places = []
     for name, edge in (("f_L", review.f_low), ("f_H", review.f_high)):
-        hz = None if edge is None else edge.simulated_hz if edge.simulated_hz is not None else edge.exact_hz
+        hz = known_hz(edge)
         if hz is not None:
             places.append((name, hz))
     return places

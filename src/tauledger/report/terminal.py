@@ -9,22 +9,9 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from tauledger.record import NodeRow, Review
-from tauledger.report import (
-    at,
-    changed,
-    curve,
-    helps,
-    large_signal,
-    lower,
-    paper,
-    poles,
-    reasons,
-    steps,
-    summary,
-    unity,
-    upper,
-)
+from tauledger.report import helps, large_signal, lower, poles, reasons, steps, summary, upper
 from tauledger.report.layout import CAUTION, HEADING, STRONG, WARNING, Line, Section, lay_out
+from tauledger.report.shown import unity_shown
 from tauledger.report.working import workings
 
 _PAGE = 60
@@ -50,20 +37,17 @@ def render(
         reasons.warning(review),
         summary.headline(review),
         summary.band(review),
-        unity.unity_gain(review),
-        at.gain_and_phase(review, verbose=verbose),
-        changed.changed(review),
+        *_asked_of_the_response(review, verbose=verbose),
+        *_changed(review),
         summary.operating_points(review, verbose=verbose),
-        paper.own_page(review),
-        curve.measured_curve(review),
+        *_brought_along(review),
         reasons.causes(review, verbose=verbose),
         *_loops(review),
         upper.upper_budget(review, verbose=verbose),
         steps.steps(review, "f_high"),
         steps.methods_table(review, "f_high") if verbose else Section(()),
         upper.upper_shares(review, verbose=verbose),
-        unity.who_sets(review, verbose=verbose),
-        at.peaking(review, verbose=verbose),
+        *_who_makes_it(review, verbose=verbose),
         helps.what_would_help(review) if verbose else Section(()),
         lower.lower_edge(review, verbose=verbose),
         steps.steps(review, "f_low") if verbose else Section(()),
@@ -73,11 +57,55 @@ def render(
         large_signal.large_signal(review, verbose=verbose),
         *_drives_and_outputs(review),
         *(workings(review, [node]) for node in working if not verbose),
-        changed.read_past(review) if verbose else Section(()),
+        *(_read_past(review) if verbose else ()),
         reasons.closing(review),
     )
     lines = lay_out(sections, width=width, unicode=unicode, page=_PAGE)
     return _painted(lines) if color else "".join(f"{line.text}\n" for line in lines)
+
+
+# What few reviews have is imported where there is any: most pages are printed without.
+
+
+def _asked_of_the_response(review: Review, *, verbose: bool) -> tuple[Section, ...]:
+    """Give unity gain where it is what the amplifier is about, and gain and phase at single frequencies."""
+    if not unity_shown(review) and not review.at:
+        return ()
+    from tauledger.report import at, unity
+
+    return unity.unity_gain(review), at.gain_and_phase(review, verbose=verbose)
+
+
+def _changed(review: Review) -> tuple[Section, ...]:
+    if not review.settings and not review.added:
+        return ()
+    from tauledger.report import changed
+
+    return (changed.changed(review),)
+
+
+def _brought_along(review: Review) -> tuple[Section, ...]:
+    """Give the reader's own page of figures, and their measured curve."""
+    if not review.paper and review.curve is None:
+        return ()
+    from tauledger.report import curve, paper
+
+    return paper.own_page(review), curve.measured_curve(review)
+
+
+def _who_makes_it(review: Review, *, verbose: bool) -> tuple[Section, ...]:
+    """Give who sets unity gain, and who makes the peaking."""
+    if not unity_shown(review) and not review.peaking:
+        return ()
+    from tauledger.report import at, unity
+
+    return unity.who_sets(review, verbose=verbose), at.peaking(review, verbose=verbose)
+
+
+def _read_past(review: Review) -> tuple[Section, ...]:
+    from tauledger.report import changed
+
+    return (changed.read_past(review),)
 
 
 def _loops(review: Review) -> tuple[Section, ...]:
