@@ -1,12 +1,14 @@
 """The phase of a response, continuous along the frequency axis: poles and zeros choose the turn of the exact phase.
 
 With lines there are no such poles and zeros; then a scan fine enough to follow their delay chooses it.
+
+Source: Bode, "Network Analysis and Feedback Amplifier Design", 1945 (phase by poles and zeros).
 """
 
 from __future__ import annotations
 
 import numpy as np
-from msgspec import Struct
+from msgspec import Struct, field
 
 from tauledger.network.midband import MidBand
 from tauledger.network.solve import Complex, Real
@@ -21,8 +23,8 @@ class Angle(Struct, frozen=True):
     poles: Complex
     zeros: Complex
     midband: MidBand
-    scan_hz: Real = np.zeros(0)
-    scan_deg: Real = np.zeros(0)
+    scan_hz: Real = field(default_factory=lambda: np.zeros(0))
+    scan_deg: Real = field(default_factory=lambda: np.zeros(0))
 
     def beyond_midband(self, frequency_hz: float, h: complex) -> float:
         """Give the phase of h at this frequency minus that at mid-band, in degrees, unwrapped."""
@@ -34,17 +36,21 @@ class Angle(Struct, frozen=True):
         if len(self.scan_hz):
             turning = np.interp(frequency_hz, self.scan_hz, self.scan_deg)
         else:
-            turning = self._sum(self.zeros, frequency_hz) - self._sum(self.poles, frequency_hz)
+            start_hz = self.midband.frequency_hz
+            of_zeros, of_poles = (turned_deg(roots, start_hz, frequency_hz) for roots in (self.zeros, self.poles))
+            turning = np.sum(of_zeros, axis=1) - np.sum(of_poles, axis=1)
         return np.asarray(exact + 360.0 * np.round((turning - exact) / 360.0), dtype=np.float64)
 
-    def _sum(self, roots: Complex, frequency_hz: Real) -> Real:
-        ends = np.concatenate([[self.midband.frequency_hz], frequency_hz])
-        moving = roots[roots != 0.0]
-        # seen from a root, the axis point turns through the angle whose tangent is its height over its distance
-        height = 2.0 * np.pi * ends[:, None] - moving.imag
-        side = np.where(moving.real > 0.0, -1.0, 1.0)
-        turn = np.sum(np.arctan2(height, np.abs(moving.real)) * side, axis=1)
-        return np.asarray(np.degrees(turn[1:] - turn[0]), dtype=np.float64)
+
+def turned_deg(roots: Complex, start_hz: float, frequency_hz: Real) -> Real:
+    """Give the degrees (k, m) that the axis point turns through from start_hz to (k,) in Hz, as seen from m roots.
+
+    roots: rad/s. Seen from the right half plane it turns the other way; seen from the origin it does not turn.
+    """
+    height = 2.0 * np.pi * np.concatenate([[start_hz], frequency_hz])[:, None] - roots.imag
+    side = np.where(roots == 0.0, 0.0, np.where(roots.real > 0.0, -1.0, 1.0))
+    turn = side * np.arctan2(height, np.abs(roots.real))
+    return np.asarray(np.degrees(turn[1:] - turn[0]), dtype=np.float64)
 
 
 def scanned_angle(midband: MidBand, frequency_hz: Real, h: Complex) -> Angle:

@@ -32,6 +32,7 @@ from tauledger.devices.parts import (
 )
 from tauledger.errors import InputError
 from tauledger.network.assemble import Network, assemble, incidence
+from tauledger.network.merge import root_of
 
 if TYPE_CHECKING:
     from tauledger.network.solve import Solution
@@ -176,11 +177,11 @@ def require_held_ends(network: Network) -> None:
         else:
             pairs = [part.nodes[:2]]
         for a, b in pairs:
-            held[_root(held, a)] = _root(held, b)
-    ground = _root(held, GROUND)
+            held[root_of(held, a)] = root_of(held, b)
+    ground = root_of(held, GROUND)
     for part in network.lines:
         for pair in (part.nodes[:2], part.nodes[2:]):
-            if _root(held, pair[0]) != ground:
+            if root_of(held, pair[0]) != ground:
                 raise InputError(
                     f"{part.owner}: nothing but the line holds the nodes {pair[0]} and {pair[1]}",
                     f"tie {pair[1]} to ground, or to the other end: a line passes no voltage common to its conductors",
@@ -212,15 +213,9 @@ def _beside(joined: dict[str, str], part: Part) -> bool:
     a, near_minus, b, far_minus = part.nodes
     if near_minus != far_minus:
         return False
-    a, b = _root(joined, a), _root(joined, b)
+    a, b = root_of(joined, a), root_of(joined, b)
     joined[a] = b
     return a == b
-
-
-def _root(joined: dict[str, str], node: str) -> str:
-    while joined.get(node, node) != node:
-        node = joined[node]
-    return node
 
 
 def _section(part: Part, ohm: float, henry: float, farad: float) -> Iterable[Part]:

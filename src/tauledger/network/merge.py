@@ -14,20 +14,21 @@ from tauledger.network.assemble import Network, assemble, without_loose_ends
 def joined_nodes(network: Network, joining: Iterable[Part]) -> dict[str, str]:
     """Give for every node, ground included, the node that stands for all that these two-terminal parts join with it."""
     nodes = [GROUND, *network.unknowns[: network.n_nodes]]
-    root = {node: node for node in nodes}
-
-    def find(node: str) -> str:
-        while root[node] != node:
-            root[node] = root[root[node]]
-            node = root[node]
-        return node
-
+    joined: dict[str, str] = {}
     rank = {node: position for position, node in enumerate([GROUND, network.port.plus, network.port.minus, *nodes])}
     rank |= {network.port.minus: 2, network.port.plus: 1, GROUND: 0}
     for part in joining:
-        a, b = sorted((find(part.nodes[0]), find(part.nodes[1])), key=lambda node: rank[node])
-        root[b] = a
-    return {node: find(node) for node in nodes}
+        a, b = sorted((root_of(joined, end) for end in part.nodes[:2]), key=lambda node: rank[node])
+        joined[b] = a
+    return {node: root_of(joined, node) for node in nodes}
+
+
+def root_of(joined: dict[str, str], node: str) -> str:
+    """Give the node at the end of the chain that leads from this one; the chain is shortened on the way."""
+    while (after := joined.get(node, node)) != node:
+        joined[node] = joined.get(after, after)
+        node = joined[node]
+    return node
 
 
 def renamed(network: Network, parts: list[Part], merged: Mapping[str, str]) -> Network:

@@ -6,10 +6,10 @@ from every zero, less that from every pole. Source: Bode, "Network Analysis and 
 
 from __future__ import annotations
 
-import math
-
+import numpy as np
 from msgspec import Struct
 
+from tauledger.network.angle import turned_deg
 from tauledger.network.identities import Identity
 from tauledger.network.poles import Pole, PoleZeroMap, Zero
 
@@ -57,18 +57,6 @@ def phase_identities(used: PhaseUsed, used_deg: float, *, rational: bool) -> tup
 
 
 def _turn(root: Pole | Zero, start_hz: float, stop_hz: float) -> float:
-    """Give the degrees through which the axis point turns between two frequencies, as seen from a root or its pair.
-
-    Seen from the right half plane it turns the other way; seen from the origin it does not turn.
-    """
-    s = root.s
-    if s == 0.0:
-        return 0.0
-    side = -1.0 if s.real > 0.0 else 1.0
-    heights = (s.imag, -s.imag) if root.paired else (s.imag,)
-    turned = sum(
-        math.atan2(2.0 * math.pi * stop_hz - height, abs(s.real))
-        - math.atan2(2.0 * math.pi * start_hz - height, abs(s.real))
-        for height in heights
-    )
-    return math.degrees(side * turned)
+    """Give the degrees through which the axis point turns between two frequencies, as seen from a root or its pair."""
+    roots = np.array([root.s, root.s.conjugate()] if root.paired else [root.s])
+    return float(np.sum(turned_deg(roots, start_hz, np.array([stop_hz]))))
