@@ -8,7 +8,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from tauledger.quantity import engineering, percent
+from tauledger.quantity import decibel_unit, engineering, percent
 
 PREFIXES = {"f": -15, "p": -12, "n": -9, "µ": -6, "m": -3, "": 0, "k": 3, "M": 6, "G": 9, "T": 12}
 
@@ -52,3 +52,8 @@ def test_the_text_is_the_value_to_its_digits(value: float, digits: int) -> None:
 )
 def test_a_change_in_per_cent(fraction: float, text: str) -> None:
     assert percent(fraction) == text
+
+
+@pytest.mark.parametrize(("unit", "level"), [("V/V", "dB"), ("A/A", "dB"), ("", "dB"), ("Ω", "dBΩ"), ("S", "dBS")])
+def test_a_level_in_decibel_says_what_one_of_it_is(unit: str, level: str) -> None:
+    assert decibel_unit(unit) == level

@@ -39,3 +39,8 @@ def percent(fraction: float, digits: int = 2) -> str:
     value = 100.0 * fraction
     decimals = max(0, digits - 1 - math.floor(math.log10(abs(value)))) if value else 1
     return f"{value:+.{min(decimals, 2)}f} %"
+
+
+def decibel_unit(unit: str) -> str:
+    """Give the unit of a gain in decibel by the unit of the gain: dB of a plain ratio, dBΩ of Ω, dBS of S."""
+    return {"Ω": "dBΩ", "S": "dBS"}.get(unit, "dB")

@@ -179,4 +179,10 @@ def test_what_cannot_be_known_is_said_and_a_card_in_a_subcircuit_keeps_its_name(
 def test_what_is_put_in_says_where_and_its_value_stands_in_its_column() -> None:
     change = WantChange("CX", "F", None, 7.07e-12, new=True, beside="out to b", owner="CX")
     one = replace(REACHED, changes=(change,))
-    assert cells(MARGIN, one)[:3] == ("C put in, out to b", "7.070 pF", "")
+    assert cells(MARGIN, one, ECHO_PREAMP)[:3] == ("C put in, out to b", "7.070 pF", "")
+
+
+def test_the_gain_beside_it_stands_in_its_own_decibel() -> None:
+    current_driven = replace(ECHO_PREAMP, midband=replace(ECHO_PREAMP.midband, unit="Ω"))
+    for review, level in ((ECHO_PREAMP, "dB"), (current_driven, "dBΩ")):
+        assert cells(MARGIN, REACHED, review)[4] == f"{REACHED.gain_db:.2f} {level}"

@@ -3,12 +3,14 @@
 from __future__ import annotations
 
 from tauledger.circuit import Change
+from tauledger.quantity import decibel_unit
 from tauledger.record import AddedPart, EdgeFacts, MovedFigure, Review, SetValue, UnityFacts
 
 
 def set_values(change: Change) -> tuple[SetValue, ...]:
-    """List what a change sets: parameters, elements, parameters of models."""
-    named = [*change.parameters, *change.elements]
+    """List what a change sets: temperature, parameters, elements, parameters of models."""
+    named = [("temp", change.temperature_c)] if change.temperature_c is not None else []
+    named += [*change.parameters, *change.elements]
     named += [(f"{model}.{parameter}", value) for model, parameter, value in (*change.models, *change.given)]
     return tuple(SetValue(name, value) for name, value in named)
 
@@ -18,16 +20,13 @@ def added_parts(change: Change) -> tuple[AddedPart, ...]:
     return tuple(AddedPart(load.plus, load.kind, load.value) for load in change.loads)
 
 
-DECIBELS = {"Ω": "dBΩ", "S": "dBS"}
-
-
 def moved_figures(before: Review, after: Review) -> tuple[MovedFigure, ...]:
     """Set the figures of the headline side by side: mid-band, both edges, unity gain.
 
     What neither review has is left out, and of unity gain what only one has.
     """
     rows = [
-        MovedFigure("gain", DECIBELS.get(after.midband.unit, "dB"), before.midband.gain_db, after.midband.gain_db),
+        MovedFigure("gain", decibel_unit(after.midband.unit), before.midband.gain_db, after.midband.gain_db),
         MovedFigure("plateau from", "Hz", before.midband.from_hz, after.midband.from_hz),
         MovedFigure("plateau to", "Hz", before.midband.to_hz, after.midband.to_hz),
     ]

@@ -2,13 +2,13 @@
 
 from __future__ import annotations
 
+from tauledger.quantity import decibel_unit
 from tauledger.record import AtElement, AtFacts, PeakElement, PeakFacts, Review
 from tauledger.report.layout import Block, Prose, Row, Section, Table
 from tauledger.report.unity import FIRST_ORDER, degrees, signed
 from tauledger.report.wording import EDGE, NO_NUMBER, move, nominal, number, part_title
 
 _MOST = 4
-_DECIBEL = {"Ω": "dBΩ", "S": "dBS"}
 
 
 def gain_and_phase(review: Review, *, verbose: bool = False) -> Section:
@@ -47,7 +47,7 @@ def peaking(review: Review, *, verbose: bool = False) -> Section:
 
 def source_rows(one: AtFacts, review: Review) -> tuple[tuple[str, ...], ...]:
     """Give the rows of one frequency: frequency, source, gain in dB, phase, phase beyond mid-band."""
-    unit = _DECIBEL.get(review.midband.unit, "dB")
+    unit = decibel_unit(review.midband.unit)
     at = number(one.hz, "Hz")
     rows = []
     if one.simulated_db is not None:

@@ -2,11 +2,11 @@
 
 from __future__ import annotations
 
+from tauledger.quantity import decibel_unit
 from tauledger.record import OutputRow, Review
 from tauledger.report.layout import Block, Prose, Row, Section, Table
 from tauledger.report.wording import NO_NUMBER, number
 
-DECIBEL = {"Ω": "dBΩ", "S": "dBS"}
 BALANCED = "no common-mode gain: both halves are equal in the netlist, on the board their difference makes it"
 
 
@@ -32,7 +32,7 @@ def mode_rows(review: Review) -> tuple[tuple[str, ...], ...]:
     """Give the rows: frequency, source of the numbers, differential and common-mode gain, CMRR."""
     facts = review.modes
     assert facts is not None
-    unit = DECIBEL.get(facts.unit, "dB")
+    unit = decibel_unit(facts.unit)
     rows: list[tuple[str, ...]] = []
     for row in facts.rows:
         at = f"{row.at}, {'DC' if row.hz == 0.0 else number(row.hz, 'Hz')}"
@@ -62,7 +62,7 @@ def further_outputs(review: Review) -> Section:
 
 def output_rows(one: OutputRow) -> tuple[tuple[str, ...], ...]:
     """Give the rows of one output: name, source of the numbers, gain, where, f_L, f_H."""
-    unit = DECIBEL.get(one.unit, "dB")
+    unit = decibel_unit(one.unit)
     at = "DC" if one.frequency_hz == 0.0 else number(one.frequency_hz, "Hz")
     rows: list[tuple[str, ...]] = []
     if one.simulated_db is not None:

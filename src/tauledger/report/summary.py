@@ -4,11 +4,11 @@ from __future__ import annotations
 
 import math
 
+from tauledger.quantity import decibel_unit
 from tauledger.record import DeviceFacts, DriveFacts, EdgeFacts, MidbandFacts, OutputFacts, Review, Stage
 from tauledger.report.layout import STRONG, Block, Prose, Row, Section, Table
 from tauledger.report.wording import NO_NUMBER, figure_symbols, move, nominal, number, part_unit
 
-_DECIBEL = {"V/V": "dB", "A/A": "dB", "ohm": "dBΩ", "Ω": "dBΩ", "S": "dBS"}
 _FIGURES_A_LINE = 9
 _STAGES_WORTH_TELLING = 3
 
@@ -120,7 +120,7 @@ def _output(output: OutputFacts) -> str:
 
 def _midband(midband: MidbandFacts) -> str:
     gain = complex(midband.gain_real, midband.gain_imag)
-    decibel = f"{midband.gain_db:.2f} {_DECIBEL.get(midband.unit, 'dB')}"
+    decibel = f"{midband.gain_db:.2f} {decibel_unit(midband.unit)}"
     if abs(gain.imag) <= 1e-2 * abs(gain.real):
         size = number(gain.real, midband.unit)
     else:

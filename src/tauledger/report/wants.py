@@ -13,7 +13,7 @@ def what_it_takes(review: Review) -> Section:
     for want in review.wants:
         blocks.append(Prose(verdict(want), lead="WANTED  ", style=HEADING if want.met else CAUTION))
         if want.remedies:
-            rows = tuple(Row(cells(want, one)) for one in want.remedies)
+            rows = tuple(Row(cells(want, one, review)) for one in want.remedies)
             head = ("WHAT IT TAKES", *heads(want))
             blocks.append(Table("l" + "r" * len(heads(want)), head, rows))
             blocks.append(Prose(notes(want), lead="  "))

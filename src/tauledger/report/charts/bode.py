@@ -6,6 +6,7 @@ import math
 from collections.abc import Mapping
 from typing import TYPE_CHECKING, Any
 
+from tauledger.quantity import decibel_unit
 from tauledger.record import Review
 from tauledger.report.charts.style import blank, light, styled, to_svg
 from tauledger.report.curve import place_text
@@ -24,7 +25,6 @@ LOOKS: Mapping[str, Mapping[str, Any]] = {"hand": {"linestyle": (0, (5, 2)), "li
 BELOW_UNITY_DB = 20.0
 # Marks closer than this ratio have no room for both their names above them.
 NAME_NEEDS, NARROW_NEEDS = 1.8, 5.0
-DECIBEL = {"V/V": "dB", "A/A": "dB", "ohm": "dBΩ", "Ω": "dBΩ", "S": "dBS"}
 
 
 def bode_chart(review: Review, *, narrow: bool = False) -> str:
@@ -45,7 +45,7 @@ def bode_chart(review: Review, *, narrow: bool = False) -> str:
         upper.set_xscale("log")
         upper.set_xlim(first, last)
         upper.set_ylim(bottom, top)
-        upper.set_ylabel(f"magnitude in {DECIBEL.get(review.midband.unit, 'dB')}")
+        upper.set_ylabel(f"magnitude in {decibel_unit(review.midband.unit)}")
         lower.set_ylabel("phase in degrees")
         low, high = lower.get_ylim()
         lower.set_ylim(max(low, midband_deg(review) - MOST_DEG), min(high, midband_deg(review) + MOST_DEG))

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from tauledger.quantity import decibel_unit
 from tauledger.record import Remedy, Review, WantChange, WantFacts
 from tauledger.report.tables.grid import Grid, GridRow, columns
 from tauledger.report.tables.phase import angle
@@ -54,13 +55,13 @@ def heads(want: WantFacts) -> Cells:
     return ("value", "by slope", *BESIDE[want.quantity], OWN[want.quantity], "ngspice")
 
 
-def cells(want: WantFacts, one: Remedy) -> Cells:
+def cells(want: WantFacts, one: Remedy, review: Review) -> Cells:
     """Give the cells of one remedy: the change, its value, what the slope alone says, what comes of it."""
     value = next((change for change in one.changes if not _put_in(change)), None)
     beside = {
         "f_u": number(one.f_unity_hz, "Hz", 4),
         "margin": angle(one.phase_margin_deg),
-        "gain": f"{one.gain_db:.2f} dB",
+        "gain": f"{one.gain_db:.2f} {decibel_unit(review.midband.unit)}",
     }
     others = (beside[head] for head in BESIDE[want.quantity])
     by_slope = "" if value is None or value.first_order is None else number(value.first_order, value.unit, 4)
@@ -90,7 +91,7 @@ def _put_in(change: WantChange) -> bool:
 def notes(want: WantFacts) -> str:
     """Say how the values were found, and what the mark means."""
     told = [
-        "value: computed again until it does, operating point held; ngspice: the changed circuit run",
+        "value: recomputed until it does, operating point held; ngspice: the changed circuit run",
         *dict.fromkeys(
             f"{BIAS} moves the operating point; {one.says}" if one.moves_bias else one.says
             for one in want.remedies
@@ -106,7 +107,7 @@ def what_it_takes(review: Review) -> tuple[Grid, ...]:
         Grid(
             f"What {wanted(want)} takes",
             columns("change", *heads(want)),
-            tuple(GridRow(cells(want, one), part=_part(one)) for one in want.remedies),
+            tuple(GridRow(cells(want, one, review), part=_part(one)) for one in want.remedies),
             f"{notes(want)}.",
         )
         for want in review.wants
