@@ -68,11 +68,6 @@ def families_of(letter: str) -> tuple[Family, ...]:
     return OF_LETTER.get(letter.upper(), ())
 
 
-def family_of(letter: str) -> Family | None:
-    """Give the first family of an element letter (either case), or None where no family has it."""
-    return next(iter(families_of(letter)), None)
-
-
 def choose(element: Element, model: Model | None) -> Family | Refusal:
     """Give the family that takes this element, or the reason why none does.
 

@@ -7,13 +7,12 @@ from __future__ import annotations
 
 from msgspec import Struct
 
-from tauledger.hand.compensation import FORMULAS
+from tauledger.hand.compensation import FORMULAS, GRAY
 from tauledger.hand.rules import RULES
 from tauledger.hand.rules.transformer import FORMULA as TRANSFORMER_FORMULA
 from tauledger.hand.rules.transformer import SOURCE as TRANSFORMER_SOURCE
 from tauledger.hand.rules.transformer import VALID as TRANSFORMER_VALID
 
-GRAY = "Gray, Hurst, Lewis and Meyer, Analysis and Design of Analog Integrated Circuits, 5th ed., 2009"
 HAJIMIRI = "Hajimiri, IEEE Trans. Circuits Syst. I 57(6), 2010 (time and transfer constants)"
 MEASURED = "measured over 311 networks: own boards, published cases and random ones of one to three stages"
 SEDRA = "Sedra and Smith, Microelectronic Circuits, 8th ed."

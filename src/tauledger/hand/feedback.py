@@ -33,13 +33,14 @@ from tauledger.hand.stages import stage_rows
 from tauledger.network.assemble import Network, assemble
 from tauledger.network.bands import GAIN_TOLERANCE, Bands, merged_nodes, upper_network
 from tauledger.network.midband import MidBand
+from tauledger.network.reactances import REACTIVE
 from tauledger.network.return_ratio import CONTROLLED, VOLTAGE_KINDS, at_source, at_wire, return_ratio
 from tauledger.network.solve import on_axis, response
 
 LOOP_ABOVE = 1.0
+# What is left of T where only another way round leads, past the part that was taken out of the loop.
 DIES = 0.1
 SOURCE = "loop'i"
-REACTIVE = ("capacitance", "transcapacitance", "inductance", "mutual inductance", "block")
 
 
 class FoundLoop(Struct, frozen=True):

@@ -15,7 +15,7 @@ from msgspec import Struct
 from msgspec.structs import replace
 
 from tauledger.circuit import GROUND, Port
-from tauledger.devices.family import Device, Terminal, Transconductor
+from tauledger.devices.family import Device, Terminal
 from tauledger.devices.parts import Part, capacitance, conductance, voltage_source
 from tauledger.errors import InputError, NetworkError
 from tauledger.hand.budget import signal_nodes
@@ -26,6 +26,7 @@ from tauledger.network.return_ratio import SERIES, at_wire
 from tauledger.network.solve import on_axis, response
 
 DRIVE, SHORT = "loop'v", "loop'0"
+# A node that takes less of the sum is not shown.
 COUNTS = 0.01
 # The gain that multiplies the input capacitance has not fallen yet, and coupling capacitors are shorts.
 BELOW_THE_EDGE = 0.1
@@ -109,15 +110,8 @@ def _moved(device: Device, node: str, far: str) -> Device:
 
     cell = device.cell
     if cell is not None:
-        cell = _moved_cell(cell, node, far)
+        body = None if cell.body is None else at(cell.body)
+        cell = replace(cell, control=at(cell.control), common=at(cell.common), output=at(cell.output), body=body)
     terminals = tuple(Terminal(t.word, at(t.outer), at(t.inner)) for t in device.terminals)
     parts = tuple(replace(part, nodes=tuple(at(one) for one in part.nodes)) for part in device.parts)
     return replace(device, cell=cell, terminals=terminals, parts=parts)
-
-
-def _moved_cell(cell: Transconductor, node: str, far: str) -> Transconductor:
-    def at(one: str) -> str:
-        return far if one == node else one
-
-    body = None if cell.body is None else at(cell.body)
-    return replace(cell, control=at(cell.control), common=at(cell.common), output=at(cell.output), body=body)
