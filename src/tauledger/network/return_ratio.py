@@ -22,13 +22,13 @@ import numpy as np
 from msgspec import Struct
 from msgspec.structs import replace
 
-from tauledger.circuit import GROUND
+from tauledger.circuit import GROUND, fold
 from tauledger.devices.parts import Part, voltage_source
 from tauledger.errors import InputError, NetworkError
 from tauledger.network.admittance import DENSE_LIMIT, admittance
 from tauledger.network.assemble import Network, assemble, incidence
 from tauledger.network.identities import Identity, check
-from tauledger.network.solve import Complex, Real, solve
+from tauledger.network.solve import Complex, Real, batches, solve
 
 Kind = Literal["source", "admittance", "wire"]
 
@@ -121,7 +121,8 @@ def at_admittance(network: Network, part: Part) -> Opening:
     if part.kind not in BILATERAL:
         raise InputError(f"{part.name} is no resistor, capacitor or inductor", "name one, or a controlled source")
     if part.kind == "inductance":
-        if any(part.owner in other.references for other in network.parts) or network.port.through == part.owner:
+        own = fold(part.owner)
+        if own == fold(network.port.through) or any(own in map(fold, other.references) for other in network.parts):
             raise InputError(f"the current of {part.name} is used elsewhere: it cannot be taken out", "name another")
         kept = tuple(other for other in network.parts if other is not part)
         reference = assemble(kept, network.port, network.amplitudes)
@@ -139,7 +140,7 @@ def at_wire(network: Network, owner: str, node: str) -> Opening:
 
     Raises InputError where that element has nothing there, or the node is ground.
     """
-    mine = [part for part in network.parts if part.owner.partition("'")[0] == owner and node in part.nodes]
+    mine = [part for part in network.parts if fold(part.owner.partition("'")[0]) == fold(owner) and node in part.nodes]
     if node == GROUND or not mine:
         raise InputError(f"no wire leads from {node} into {owner}", "name a terminal that carries signal")
     far = f"{owner}'loop"
@@ -253,12 +254,17 @@ def _driven(network: Network, right: Real, s: Complex) -> Complex:
         answers = [solve(replace(network, drive=one.astype(complex)), s).x for one in several]
         found = np.asarray(np.stack(answers, axis=1), dtype=np.complex128)
     else:
+        right_sides = several.T.astype(complex)
         try:
-            y = admittance(network, np.atleast_1d(s))
-            right_sides = np.broadcast_to(several.T.astype(complex), (len(y), *several.T.shape))
-            found = np.asarray(np.linalg.solve(y, right_sides), dtype=np.complex128)
+            solved = [
+                np.linalg.solve(
+                    admittance(network, some), np.broadcast_to(right_sides, (len(some), *right_sides.shape))
+                )
+                for some in batches(network, np.atleast_1d(s))
+            ]
         except np.linalg.LinAlgError as error:
             raise NetworkError("the small-signal network has no unique solution") from error
+        found = np.concatenate(solved)
         if not np.all(np.isfinite(found)):
             raise NetworkError("the small-signal network has no finite solution")
         found = found.transpose(0, 2, 1)

@@ -51,7 +51,7 @@ def solve(network: Network, s: Complex) -> Solution:
     else:
         output = network.output.astype(complex)
         solved = []
-        for some in _batches(network, s):
+        for some in batches(network, s):
             y = admittance(network, some)
             solved.append((_dense(y, network.drive), _dense(y.transpose(0, 2, 1), output)))
         x, adjoint = (np.concatenate(found) for found in zip(*solved, strict=True))
@@ -67,12 +67,12 @@ def response(network: Network, frequency_hz: Real) -> Complex:
     if network.size > DENSE_LIMIT:
         x, _ = _sparse(network, s, adjoint=False)
     else:
-        x = np.concatenate([_dense(admittance(network, some), network.drive) for some in _batches(network, s)])
+        x = np.concatenate([_dense(admittance(network, some), network.drive) for some in batches(network, s)])
     return _output(network, x)
 
 
-def _batches(network: Network, s: Complex) -> list[Complex]:
-    """Cut s (k,) so that the matrices solved at once stay small."""
+def batches(network: Network, s: Complex) -> list[Complex]:
+    """Cut s (k,) into pieces for which the matrices that are solved at once stay small."""
     count = max(1, MOST_ENTRIES // network.size**2)
     return [s[first : first + count] for first in range(0, max(len(s), 1), count)]
 
