@@ -72,3 +72,6 @@ def test_an_instance_that_is_not_there_is_named_with_those_that_are(tmp_path: Pa
     path.write_text(STAGE)
     with pytest.raises(InputError, match=r"--fold U7: there is no such subcircuit instance\n\s+instances: XST"):
         solve(read(path), NO_CHANGE, engine, fold=("U7",))
+    path.write_text("divider\nVIN in 0 AC 1\nR1 in out 1k\nC1 out 0 1n\n.print ac v(out)\n.end\n")
+    with pytest.raises(InputError, match=r"--fold U7: there is no such subcircuit instance\n\s+instances: none"):
+        solve(read(path), NO_CHANGE, engine, fold=("U7",))

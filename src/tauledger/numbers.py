@@ -82,7 +82,7 @@ def solve(
     circuit = _per_unit(elaborate(netlist, change, drive=drive, output=output))
     bias = engine.operating_point(circuit)
     linearised = linearised_at(netlist, circuit, bias)
-    if len(circuit.instances) > 1:
+    if len(circuit.instances) > 1 or fold:
         from tauledger.network.folding import fold_instances
 
         linearised = fold_instances(circuit, linearised, fold)

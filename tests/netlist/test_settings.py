@@ -60,6 +60,7 @@ def board(tmp_path: Path) -> Path:
         ("X1:local.is=1f", Change(models=(("X1:local", "is", 1e-15),))),
         ("q1.AREA=2", Change(given=(("Q1", "area", 2.0),))),
         ("X4.LEVEL=3", Change(given=(("X4", "level", 3.0),))),
+        ("Temp=-40", Change(temperature_c=-40.0)),
     ],
 )
 def test_a_name_is_a_parameter_an_element_or_a_parameter_of_a_model(board: Path, setting: str, change: Change) -> None:

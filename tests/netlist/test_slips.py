@@ -35,6 +35,22 @@ def test_a_second_suffix_is_no_factor_and_a_note_says_so(tmp_path: Path, value: 
     ]
 
 
+@pytest.mark.parametrize("filler", ["", "".join(f"RF{k} in out 1meg\n" for k in range(12))])
+@pytest.mark.parametrize(("written", "ohm"), [("1M", "0.001"), ("6.8M", "0.0068"), ("2.2MOhm", "0.0022")])
+def test_a_capital_m_on_a_resistor_is_said_to_be_milli(tmp_path: Path, filler: str, written: str, ohm: str) -> None:
+    text = PAD + filler + f"R2 out 0 {written}\n"
+    number = written.rstrip("MOhm")
+    assert notes_of(tmp_path, text) == [
+        f"{text.count(chr(10))} R2 has {written}: M is milli in SPICE, as m is; {ohm} Ω is taken, write {number}meg for "
+        "megohms"
+    ]
+
+
+@pytest.mark.parametrize("written", ["10m", "1meg", "2.2MEG", "1Meg"])
+def test_a_small_m_and_meg_need_no_note(tmp_path: Path, written: str) -> None:
+    assert notes_of(tmp_path, PAD + f"R2 out 0 {written}\n") == []
+
+
 @pytest.mark.parametrize("value", ["3.3k", "3.3kohm", "3.3meg", "3.3megohm", "100mm", "1um", "1nF", "1pf"])
 def test_a_unit_behind_a_suffix_needs_no_note(tmp_path: Path, value: str) -> None:
     assert notes_of(tmp_path, PAD + f"R2 out 0 {value}\n") == []

@@ -9,7 +9,7 @@ from tauledger.circuit import fold
 from tauledger.netlist.draft import MOST_ELEMENTS, Block, Draft
 from tauledger.netlist.items import Word
 from tauledger.netlist.netlist import Netlist
-from tauledger.netlist.numbers import DOUBLED
+from tauledger.netlist.numbers import CAPITAL_M, DOUBLED
 from tauledger.netlist.runs import Columns, Run, columns
 from tauledger.netlist.surroundings import Surroundings, node_of
 
@@ -25,6 +25,8 @@ def add_run(netlist: Netlist, draft: Draft, around: Surroundings, number: int, r
     if len(fresh) < run.count or changed or not draft.taken.keys().isdisjoint(fresh):
         return False
     if any(map(DOUBLED.fullmatch, {text for text in run.text.split()[3::4] if text[-2:].isalpha()})):
+        return False
+    if "M" in run.text and CAPITAL_M.search(run.text):
         return False
     kind = "".join([name[0] for name in found.folded_names]).upper()
     lowest = min(found.values)

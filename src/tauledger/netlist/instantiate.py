@@ -19,6 +19,7 @@ from tauledger.netlist.letters import CONTROLLED, MODELLED, PASSIVES, PLURAL, SO
 from tauledger.netlist.lookup import model_for, picked_bin, visible_models
 from tauledger.netlist.models import ModelCard
 from tauledger.netlist.netlist import Netlist
+from tauledger.netlist.numbers import CAPITAL_M
 from tauledger.netlist.passive import impossible, passive
 from tauledger.netlist.scale import grows, scaled, scaled_sizes
 from tauledger.netlist.scopes import Scope
@@ -225,6 +226,10 @@ def _plain(
         around.scope.notes.append(ReadingNote(site.where, f"{name} has 0 Ω: 1 mΩ is put there, as ngspice does"))
     elif problem := impossible(letter, value):
         raise InputError(f"{name}: {problem}")
+    elif letter == "R" and 0.0 < value < 1.0 and value == own and (written := CAPITAL_M.search(site.card.text)):
+        says = f"{name} has {written.group()}: M is milli in SPICE, as m is; {value:.6g} Ω is taken, write "
+        says += f"{written.group(1)}meg for megohms"
+        around.scope.notes.append(ReadingNote(site.where, says))
     elif value < 0.0:
         own_name = site.card.text.split(maxsplit=1)[0]
         says = f"{own_name} has {value:.6g} Ω, less than 0: taken as written, as ngspice does"

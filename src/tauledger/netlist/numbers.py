@@ -14,6 +14,8 @@ SCALES |= {"f": 1e-15, "mil": 25.4e-6}
 
 # A second suffix in the place of the unit; m and f there are metre and farad.
 DOUBLED = re.compile(r"(.*\d\.?(?:meg|[tgkmuµμnpf]))(?:meg|[tgkuµμnp])", re.IGNORECASE | re.DOTALL)
+# A number with the suffix that elsewhere means mega.
+CAPITAL_M = re.compile(r"(?<=[\s=])([0-9.]+)M(?:[oO]hms?)?(?=\s|$)")
 
 _DECIMAL = re.compile(r"([+-]?(?:\d+\.?\d*|\.\d+))(?:([eEdD])([+-]?\d{1,9}))?(.*)", re.ASCII | re.DOTALL)
 _SUFFIX = re.compile(r"meg|mil|[tgkmuµμnpf]", re.IGNORECASE)

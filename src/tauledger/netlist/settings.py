@@ -15,10 +15,14 @@ from tauledger.netlist.numbers import read_number
 from tauledger.netlist.scopes import Scope
 from tauledger.netlist.writer import element_names
 
+# Not a card of the netlist, yet what a user would set: the temperature of the analysis in °C.
+TEMPERATURE = "temp"
+
 
 def change_of(netlist: Netlist, settings: Sequence[str]) -> Change:
-    """Give the change that "load=2k", "R3=4.7k", "X1.R1=10" or "nsmall.bf=100" ask for, values as in a netlist.
+    """Give the change that "load=2k", "R3=4.7k", "X1.R1=10", "nsmall.bf=100" or "temp=85" ask for.
 
+    Values are written as in a netlist.
     Raises InputError where one is not NAME=VALUE, where nothing is called so (with the nearest name), and where a name
     is set twice or means two things.
     """
@@ -44,6 +48,8 @@ def change_of(netlist: Netlist, settings: Sequence[str]) -> Change:
             meanings.append(("model", models[model], parameter))
         if key in given:
             meanings.append(("value of a card", *given[key]))
+        if not meanings and key == TEMPERATURE:
+            meanings.append((TEMPERATURE,))
         if not meanings:
             known = [*parameters.values(), *elements.values(), *(f"{name}.{parameter}" for name in models.values())]
             known += [f"{of}.{word}" for of, word in given.values()]
@@ -60,6 +66,7 @@ def change_of(netlist: Netlist, settings: Sequence[str]) -> Change:
             raise InputError(f"--set {visible(setting)}: {visible(name)} is set twice")
         found[meanings[0]] = value
     return Change(
+        temperature_c=found.get((TEMPERATURE,)),
         parameters=tuple((name[1], value) for name, value in found.items() if name[0] == "parameter"),
         elements=tuple((name[1], value) for name, value in found.items() if name[0] == "element"),
         models=tuple((name[1], name[2], value) for name, value in found.items() if name[0] == "model"),
