@@ -44,6 +44,7 @@ def test_lines_end_and_fields_count_as_rfc_4180_says() -> None:
         ("nodes", "b", "capacitance_f", 442.81e-12, "F"),
         ("nodes", "b", "per_farad.f_high", -6.3647e14, "Hz/F"),
         ("nodes.working.capacitances", "b/Q1.c_mu", "time_constant_s", 166.47e-9, "s"),
+        ("nodes.working.capacitances", "b/Q1.c_mu", "farad", 2.16e-12, "F"),
         ("parts", "CL", "ten_percent_less.f_high_hz", 598156.8, "Hz"),
         ("estimates", "f_high/sum of time constants", "difference", -0.02685, ""),
         ("devices.figures", "Q1/gm", "value", 105.1e-3, ""),

@@ -20,7 +20,7 @@ HEADER = ("table", "name", "quantity", "value", "unit")
 LEFT_OUT = ("curves", "miller", "loop_curves")
 UNITS = {
     "hz": "Hz", "s": "s", "ohm": "ohm", "f": "F", "farad": "F", "db": "dB", "deg": "degree", "c": "degree Celsius",
-    "a": "A", "v": "V",
+    "a": "A", "v": "V", "henry": "H", "siemens": "S",
 }  # fmt: skip
 PER_FARAD = "Hz/F"
 VOLT_PER_SECOND = ("v_per_s", "V/s")
@@ -114,6 +114,6 @@ def _unit(quantity: str, value: Any) -> str:
         return PER_FARAD
     if quantity.endswith(VOLT_PER_SECOND[0]):
         return VOLT_PER_SECOND[1]
-    if quantity == "hz":
-        return UNITS[quantity]
-    return UNITS.get(quantity.rsplit("_", 1)[-1], "") if "_" in quantity else ""
+    last = quantity.rsplit("_", 1)[-1]
+    # a single letter is a unit only behind a name
+    return UNITS.get(last, "") if len(last) > 1 or last != quantity else ""
