@@ -21,6 +21,7 @@ from tauledger.devices.parts import (
     current_source,
     delayed_transconductance,
     inductance,
+    mutual_inductance,
     resistance,
     transconductance,
     transresistance,
@@ -329,3 +330,18 @@ def test_a_forced_voltage_and_a_current_together_are_no_single_source() -> None:
     network = Network.from_parts(parts, output=Port("out"))
     with pytest.raises(InputError, match="several outputs"):
         at_source(network, [network.part("E1"), network.part("F1")])
+
+
+def test_names_are_compared_as_the_netlist_compares_them() -> None:
+    parts = [
+        voltage_source("VS", "in", "0", 1.0),
+        resistance("R1", "in", "a", 50.0),
+        inductance("L1", "a", "0", 1e-6),
+        inductance("L2", "out", "0", 1e-6),
+        mutual_inductance("K1", "l1", "l2", ("a", "0", "out", "0"), 0.5e-6),
+        resistance("R2", "out", "0", 1e3),
+    ]
+    network = Network.from_parts(parts, output=Port("out"))
+    with pytest.raises(InputError, match="is used elsewhere"):
+        at_admittance(network, network.part("L1"))
+    assert at_wire(network, "r2", "out").kind == "wire"

@@ -6,6 +6,8 @@ d ln|H|/d ln f of the adjoint solution, to rounding.
 
 from __future__ import annotations
 
+from collections.abc import Callable
+
 import numpy as np
 from msgspec import Struct
 from msgspec.structs import replace
@@ -14,7 +16,7 @@ from tauledger.network.angle import Angle, scanned_angle
 from tauledger.network.assemble import Network
 from tauledger.network.lines import lumped
 from tauledger.network.midband import MidBand, frequency_range
-from tauledger.network.solve import Complex, Real, log_slope, on_axis, response, solve
+from tauledger.network.solve import Complex, Real, Solution, log_slope, on_axis, response, solve
 from tauledger.network.spectrum import frequency_grid, pole_frequencies, zero_frequencies
 
 RIPPLES_TOLD = 5
@@ -27,6 +29,7 @@ UNCHANGED = 0.01
 SAME_HEIGHT = 1.0 - 1e-3
 # Newton's step squares: one this small leaves rounding alone.
 LAST_STEP = 1e-8
+MOST_STEPS = 100
 
 
 class Edge(Struct, frozen=True):
@@ -204,20 +207,42 @@ def crossing(network: Network, magnitude: float, a_hz: float, b_hz: float) -> fl
     |H| must lie on different sides of it at the two ends. Works on ln|H| over ln f, where a slope is a power law.
     """
     ends = np.abs(response(network, np.array([a_hz, b_hz])))
-    a, b = float(np.log(a_hz)), float(np.log(b_hz))
-    rises = bool(ends[1] > ends[0])
     start, end = np.log(ends / magnitude)
-    u = a + (b - a) * float(start / (start - end))
-    for _ in range(100):
-        at = solve(network, on_axis(np.exp(u)))
-        miss = float(np.log(np.abs(at.response[0]) / magnitude))
-        slope = float(log_slope(network, at)[0].real)
-        if (miss > 0.0) == rises:
+
+    def miss_at(solution: Solution) -> Miss:
+        size = np.abs(solution.response[0])
+        return Miss(float(np.log(size / magnitude)), float(log_slope(network, solution)[0].real))
+
+    start_hz = a_hz * (b_hz / a_hz) ** float(start / (start - end))
+    return narrowed(network, miss_at, start_hz, (a_hz, b_hz), rises=bool(ends[1] > ends[0]))
+
+
+class Miss(Struct, frozen=True):
+    """How far something is from what it shall be, and its slope over ln f."""
+
+    value: float
+    slope: float
+
+
+def narrowed(
+    network: Network, miss_at: Callable[[Solution], Miss], start_hz: float, ends_hz: tuple[float, float], *, rises: bool
+) -> float:
+    """Find where a miss is 0 between two frequencies in Hz, by Newton's method over ln f inside the bracket.
+
+    miss_at: of the solution at one frequency. rises: whether it is below 0 at the first end and above it at the second.
+    Raises NetworkError where the network has no unique solution.
+    """
+    a, b = (float(np.log(hz)) for hz in ends_hz)
+    u = float(np.log(start_hz))
+    for _ in range(MOST_STEPS):
+        miss = miss_at(solve(network, on_axis(np.exp(u))))
+        if (miss.value > 0.0) == rises:
             b = u
         else:
             a = u
-        step = u - miss / slope if slope != 0.0 else 0.5 * (a + b)
-        following = step if min(a, b) <= step <= max(a, b) else 0.5 * (a + b)
+        middle = 0.5 * (a + b)
+        step = u - miss.value / miss.slope if miss.slope != 0.0 and np.isfinite(miss.slope) else middle
+        following = step if min(a, b) <= step <= max(a, b) else middle
         if abs(following - u) <= LAST_STEP:
             return float(np.exp(following))
         u = following

@@ -15,15 +15,14 @@ from msgspec import Struct
 
 from tauledger.network.angle import scanned_angle
 from tauledger.network.assemble import Network
-from tauledger.network.edges import LAST_STEP, Edges, crossing, find_edges
+from tauledger.network.edges import Edges, Miss, crossing, find_edges, narrowed
 from tauledger.network.midband import MidBand
-from tauledger.network.solve import Complex, Real, log_slope, on_axis, response, solve
+from tauledger.network.solve import Complex, Real, Solution, log_slope, on_axis, response, solve
 
 HALF_TURN_DEG = 180.0
 BEYOND = 2.0
 FALLS = -0.5
 POINTS_PER_DECADE = 20
-STEPS = 100
 
 
 class Unity(Struct, frozen=True):
@@ -113,28 +112,20 @@ def _outwards(network: Network, midband: MidBand, edges: Edges) -> tuple[Real, C
 
 
 def _half_turn(network: Network, midband: MidBand, frequency: Real, phase_deg: Real) -> float | None:
-    """Give where the phase beyond mid-band first reaches −180°, in Hz, by Newton's method inside the bracket."""
+    """Give where the phase beyond mid-band first reaches −180°, in Hz."""
     reached = np.flatnonzero(phase_deg <= -HALF_TURN_DEG)
     if not len(reached) or reached[0] == 0:
         return None
     k = int(reached[0])
-    a, b = float(np.log(frequency[k - 1])), float(np.log(frequency[k]))
+    a_hz, b_hz = float(frequency[k - 1]), float(frequency[k])
     ahead, behind = phase_deg[k - 1] + HALF_TURN_DEG, phase_deg[k] + HALF_TURN_DEG
-    u = a + (b - a) * float(ahead / (ahead - behind))
-    for _ in range(STEPS):
-        at = solve(network, on_axis(np.exp(u)))
-        miss = float(np.angle(-at.response[0] / midband.gain))
-        slope = float(log_slope(network, at)[0].imag)
-        if miss > 0.0:
-            a = u
-        else:
-            b = u
-        step = u - miss / slope if slope != 0.0 else 0.5 * (a + b)
-        following = step if a <= step <= b else 0.5 * (a + b)
-        if abs(following - u) <= LAST_STEP:
-            return float(np.exp(following))
-        u = following
-    return float(np.exp(u))
+
+    def miss_at(solution: Solution) -> Miss:
+        left = np.angle(-solution.response[0] / midband.gain)
+        return Miss(float(left), float(log_slope(network, solution)[0].imag))
+
+    start_hz = a_hz * (b_hz / a_hz) ** float(ahead / (ahead - behind))
+    return narrowed(network, miss_at, start_hz, (a_hz, b_hz), rises=False)
 
 
 def _below_one_db(network: Network, hz: float) -> float:
