@@ -11,6 +11,7 @@ from collections.abc import Callable, Iterator, Mapping, Sequence
 
 import numpy as np
 from msgspec import Struct
+from msgspec.structs import replace
 
 from tauledger.answers.changed_circuit import free_name
 from tauledger.answers.elements import Element, elements
@@ -193,13 +194,17 @@ def _aimed(quantity: str, aim: float, left: float) -> float:
 def _follow(trial: Trial, quantity: str, numbers: Numbers) -> Callable[[float], float | None]:
     """Give a quick way to the figure over the factor, with the mid-band frequency held."""
     unity = find_unity(numbers.network, numbers.midband, numbers.edges)
+    # where |H| = 1 lay for the values that were tried, to start from the nearest
+    crossed = {1.0: unity} if unity is not None else {}
 
     def by_unity(factor: float) -> float | None:
         assert unity is not None
         changed = altered(numbers.network, trial.factors(factor), trial.series, trial.added)
-        again = follow_unity(changed, numbers.midband, unity)
+        nearest = crossed[min(crossed, key=lambda one: abs(math.log(one / factor)))]
+        again = follow_unity(changed, numbers.midband, nearest)
         if again is None:
             return None
+        crossed[factor] = replace(unity, hz=again.hz, phase_margin_deg=again.phase_margin_deg)
         return again.hz if quantity == "f_u" else again.phase_margin_deg
 
     def by_edge(factor: float) -> float | None:
