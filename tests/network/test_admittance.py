@@ -34,6 +34,7 @@ from tauledger.network.poles import find_poles
 from tauledger.network.recompute import each_scaled, edge_frequencies, scaled, without
 from tauledger.network.shares import find_shares
 from tauledger.network.solve import DENSE_LIMIT, log_slope, on_axis, response, solve
+from tauledger.network.transformers import loose_couplings
 
 TAU = 2e-9
 
@@ -202,19 +203,69 @@ def test_coupled_inductors_stay_in_both_networks() -> None:
         assert {"L1", "L2", "K1"} <= {part.name for part in kept.parts}
 
 
-def test_a_coupling_is_one_part_with_one_share_and_one_rerun() -> None:
+def test_an_inductor_s_share_is_what_it_does_with_the_coupling_k_held() -> None:
     made = transformer(0.5)
     midband = find_midband(made)
     edges = find_edges(made, midband)
     assert edges.f_high is not None
     assert edges.f_high.hz is not None
     shares = find_shares(made, midband, edges.f_high.hz, classify(made, midband).class_of)
-    assert [name for name in shares.parts if name.startswith("K")] == ["K1"]
-    up, down = (edge_frequencies(scaled(made, {"K1": 1.0 + step}), midband).f_high for step in (1e-4, -1e-4))
-    assert up is not None
-    assert down is not None
-    assert shares.parts["K1"] == pytest.approx(-np.log(up / down) / 2e-4, abs=1e-5)
+    assert not [name for name in shares.parts if name.startswith("K")]
+    moved = sensitivities(made, midband, edges, ())
+    for name in ("L1", "L2", "K1"):
+        up, down = (edge_frequencies(scaled(made, {name: 1.0 + step}), midband).f_high for step in (1e-4, -1e-4))
+        assert up is not None
+        assert down is not None
+        effect = moved[name].f_high
+        assert effect is not None
+        assert effect == pytest.approx(np.log(up / down) / 2e-4, abs=1e-5)
+        assert name == "K1" or shares.parts[name] == pytest.approx(-effect, rel=1e-9)
+
+
+def test_scaling_an_inductor_takes_its_mutual_inductances_along() -> None:
+    made = transformer(0.5)
+    before = {part.name: part.value for part in made.parts}
+    for factors in ({"L1": 0.81}, {"L1": 0.9, "L2": 0.9}, {"K1": 0.9}):
+        assert scaled(made, factors).part("K1").value == pytest.approx(0.9 * before["K1"], rel=1e-15)
+
+
+def three_windings(k: float) -> Network:
+    """A drive of 600 ohm on 1 H, with 10 mH at the output and 1 mH that feeds back into the drive's return."""
+    henry = {"L1": 1.0, "L2": 10e-3, "L3": 1e-3}
+    ends = {"L1": ("a", "0"), "L2": ("out", "0"), "L3": ("t", "0")}
+    parts = [
+        voltage_source("V1", "s", "0", 1.0),
+        resistance("RS", "s", "a", 600.0),
+        *(inductance(name, *ends[name], henry[name]) for name in henry),
+        *(
+            mutual_inductance(f"K{n}", x, y, (*ends[x], *ends[y]), k * np.sqrt(henry[x] * henry[y]))
+            for n, (x, y) in enumerate((("L1", "L2"), ("L1", "L3"), ("L2", "L3")), start=1)
+        ),
+        resistance("RL", "out", "0", 50.0),
+        resistance("RT", "t", "0", 10.0),
+        capacitance("CL", "out", "0", 100e-12),
+    ]
+    return Network.from_parts(parts, output=Port("out", "0"))
+
+
+def test_three_close_windings_have_shares_of_a_network_that_exists() -> None:
+    made = three_windings(0.999)
+    midband = find_midband(made)
+    edges = find_edges(made, midband)
+    assert edges.f_high is not None
+    assert edges.f_high.hz is not None
+    shares = find_shares(made, midband, edges.f_high.hz, classify(made, midband).class_of)
+    assert max(map(abs, shares.parts.values())) < 2.0
     less = each_scaled(made, midband, edges, 0.9)
-    assert less["K1"] == edge_frequencies(scaled(made, {"K1": 0.9}), midband)
-    effect = sensitivities(made, midband, edges, ())["K1"].f_high
-    assert effect == pytest.approx(-shares.parts["K1"], rel=1e-9)
+    assert not [name for name in less if name.startswith("K")]
+    for name in ("L1", "L2", "L3"):
+        f_high = less[name].f_high
+        assert f_high is not None
+        assert f_high / edges.f_high.hz == pytest.approx(0.9 ** -shares.parts[name], rel=0.02)
+
+
+def test_only_couplings_that_may_be_ten_per_cent_less_are_loose() -> None:
+    assert loose_couplings(transformer(0.5)) == {"K1"}
+    assert loose_couplings(transformer(0.95)) == frozenset()
+    assert loose_couplings(three_windings(0.5)) == {"K1", "K2", "K3"}
+    assert loose_couplings(three_windings(0.999)) == frozenset()

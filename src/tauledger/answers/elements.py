@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from msgspec import Struct
 
-from tauledger.compose.helps import LESS, UNITS, is_card, is_element, moves_bias
+from tauledger.compose.helps import LESS, UNITS, all_elements, is_card, moves_bias
 from tauledger.numbers import Numbers
 
 # Changes by 10 % of an element, or by 1 pF: below these nobody looks.
@@ -51,9 +51,7 @@ def size(fraction: float, degrees: float) -> float:
 def elements(numbers: Numbers) -> tuple[Element, ...]:
     """Give the elements of the network in its order."""
     found = []
-    for part in numbers.network.parts:
-        if not is_element(part):
-            continue
+    for part in all_elements(numbers.network):
         resistor, bias = part.kind == "conductance", moves_bias(part, numbers)
         found.append(
             Element(

@@ -201,7 +201,7 @@ def coupled(evidence: Evidence) -> Note | None:
         "coupled",
         names,
         f"{names} are coupled: neither short nor open at mid-band, they count in the response, the band edges and "
-        "their shares, and have no time constant by hand",
+        "their shares, these with k held, and have no time constant by hand",
     )
 
 

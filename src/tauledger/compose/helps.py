@@ -5,6 +5,7 @@ from __future__ import annotations
 from msgspec.structs import replace
 
 from tauledger.devices.parts import Part
+from tauledger.network.assemble import Network
 from tauledger.network.first_order import RESISTIVE, Sensitivity, rerun, sensitivities
 from tauledger.numbers import Numbers
 from tauledger.record import Help
@@ -27,7 +28,7 @@ def helps(numbers: Numbers) -> tuple[Help, ...]:
     if not numbers.trusted:
         return ()
     network, midband, edges = numbers.network, numbers.midband, numbers.edges
-    elements = [part for part in network.parts if is_element(part)]
+    elements = all_elements(network)
     found = sensitivities(network, midband, edges, elements)
     rows = [
         row
@@ -47,6 +48,17 @@ def helps(numbers: Numbers) -> tuple[Help, ...]:
 def is_card(part: Part) -> bool:
     """Whether a part is a card of the netlist and not inside a device; a line's delay and a transformer's L are."""
     return part.name == part.owner or part.kind in ("line", "inductance")
+
+
+def all_elements(network: Network) -> list[Part]:
+    """Give the parts to choose or to blame in the network's order; of couplings those that may be 10 % less."""
+    found = [part for part in network.parts if is_element(part)]
+    if not any(part.kind == "mutual inductance" for part in found):
+        return found
+    from tauledger.network.transformers import loose_couplings
+
+    loose = loose_couplings(network)
+    return [part for part in found if part.kind != "mutual inductance" or part.name in loose]
 
 
 def is_element(part: Part) -> bool:

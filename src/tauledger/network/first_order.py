@@ -1,7 +1,8 @@
 """What a small change of one element does to both band edges and the mid-band gain, to first order and exactly.
 
 ∂ln H/∂ln v = −v·(λᵀ out)(controlᵀ x)/H for a part v·out·controlᵀ of Y (times s for a reactive one); the edge f_c moves
-by ∂ln f_c/∂ln v = −[Re ∂ln H(f_c)/∂ln v − Re ∂ln H(f_mid)/∂ln v] / (d ln|H|/d ln f at f_c), f_mid held.
+by ∂ln f_c/∂ln v = −[Re ∂ln H(f_c)/∂ln v − Re ∂ln H(f_mid)/∂ln v] / (d ln|H|/d ln f at f_c), f_mid held. Of coupled
+inductors k is held, so that M follows.
 
 Source: Director and Rohrer, "The generalized adjoint network and network sensitivities", IEEE Trans. Circuit Theory
 CT-16(3), 1969.
@@ -19,7 +20,7 @@ from tauledger.network.assemble import Network, incidence
 from tauledger.network.edges import HALF_POWER, Edges
 from tauledger.network.lines import line_moments
 from tauledger.network.midband import MidBand
-from tauledger.network.reactances import by_part, moments, reactances
+from tauledger.network.reactances import at_held_coupling, moments, reactances, together
 from tauledger.network.recompute import edge_frequencies, scaled
 from tauledger.network.solve import Real, log_slope, on_axis, response, solve
 
@@ -55,8 +56,9 @@ def sensitivities(network: Network, midband: MidBand, edges: Edges, parts: Itera
     at = solve(network, on_axis(np.array([mid, *(mid if hz is None else hz for hz in found)])))
     slope = log_slope(network, at).real
     terms = reactances(network)
-    reactive = [by_part(terms, row.real) for row in -at.s[:, None] * moments(terms, at)]
-    moved = {name: np.array([row[name] for row in reactive]) for name in terms.names}
+    reactive = np.array([together(terms, row) for row in -at.s[:, None] * moments(terms, at)])
+    of_parts = {part.name: reactive[:, k] for k, part in enumerate(terms.distinct)}
+    moved = {name: change.real for name, change in at_held_coupling(terms.distinct, of_parts).items()}
     moved |= {name: (-at.s * moment / at.response).real for name, moment in line_moments(network, at).items()}
     for part in parts:
         if part.kind not in RESISTIVE or not part.value:

@@ -1,6 +1,8 @@
 """Every capacitance, inductance and transcapacitance as a rank-one term of C: C = Σ value · out · controlᵀ.
 
-A mutual inductance has two terms and a block one per row of its C; `by_part` takes them together.
+A mutual inductance has two terms and a block one per row of its C; `together` adds them up. `by_part` gives those of a
+mutual inductance to its two inductors: M = k·√(L1·L2), a designer chooses L1, L2 and k, and with M held a little less
+of one L would be a coupling of k > 1, which no coils have.
 
 All that a single part does to the network follows from it: its time constant value · controlᵀ Z out, its share
 value · (λᵀ out)(controlᵀ x), the pole it owns.
@@ -8,9 +10,12 @@ value · (λᵀ out)(controlᵀ x), the pole it owns.
 
 from __future__ import annotations
 
+from collections.abc import Iterable, Mapping
+
 import numpy as np
 from msgspec import Struct
 
+from tauledger.circuit import fold
 from tauledger.devices.parts import Part
 from tauledger.network.assemble import Network, Triplets, has_branch, incidence
 from tauledger.network.solve import Complex, Real, Solution
@@ -82,8 +87,30 @@ def together(terms: Reactances, values: Complex | Real) -> Complex:
 
 
 def by_part(terms: Reactances, values: Real) -> dict[str, float]:
-    """Add up what belongs to one part, by its name in the network's order; values: (m,)."""
-    return {p.name: float(value) for p, value in zip(terms.distinct, together(terms, values).real, strict=True)}
+    """Add up what belongs to one part, by its name in the network's order, couplings k held; values: (m,).
+
+    Half of a mutual inductance's goes to either of its inductors, for M follows the root of each.
+    """
+    of_parts = together(terms, values)
+    moved = {part.name: of_parts[k : k + 1] for k, part in enumerate(terms.distinct)}
+    held = at_held_coupling(terms.distinct, moved)
+    return {part.name: float(held[part.name][0].real) for part in terms.distinct if part.kind != "mutual inductance"}
+
+
+def at_held_coupling(parts: Iterable[Part], moved: Mapping[str, Complex]) -> dict[str, Complex]:
+    """Give ∂/∂ln of every value by part name, any shape, those of inductors with k held; `moved` has them with M held.
+
+    That of a mutual inductance, the inductors held, is the one of its k.
+    """
+    parts = tuple(parts)
+    windings = {fold(part.owner): part.name for part in parts if part.kind == "inductance"}
+    found = dict(moved)
+    for part in parts:
+        if part.kind == "mutual inductance":
+            for owner in part.references:
+                name = windings[fold(owner)]
+                found[name] = found[name] + 0.5 * moved[part.name]
+    return found
 
 
 def _terms(network: Network, part: Part) -> list[tuple[Real, Real]]:

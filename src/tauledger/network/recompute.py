@@ -12,6 +12,8 @@ import numpy as np
 from msgspec import Struct
 from msgspec.structs import replace
 
+from tauledger.circuit import fold
+from tauledger.devices.parts import Part
 from tauledger.network.assemble import Network, assemble, without_loose_ends
 from tauledger.network.edges import HALF_POWER, Edges, at_same_frequency, crossing, first_crossings
 from tauledger.network.midband import MidBand
@@ -19,6 +21,7 @@ from tauledger.network.rank_one import changed_response, places_of_change
 from tauledger.network.reactances import Reactances, reactances
 from tauledger.network.solve import Complex, Real, on_axis
 from tauledger.network.spectrum import passes_signal
+from tauledger.network.transformers import loose_couplings
 
 SCANNED_BEYOND = 10.0
 
@@ -33,11 +36,19 @@ class EdgeFrequencies(Struct, frozen=True):
 def scaled(network: Network, factors: Mapping[str, float]) -> Network:
     """Give the network with the values of the named parts multiplied: S of a conductance, F, H.
 
+    Of coupled inductors k is held: a mutual inductance follows the root of either, and is itself multiplied as k is.
     Raises KeyError where a name belongs to no part.
     """
-    for name in factors:
-        network.part(name)
-    parts = tuple(replace(part, value=part.value * factors.get(part.name, 1.0)) for part in network.parts)
+    windings = {fold(part.owner): part.name for part in map(network.part, factors) if part.kind == "inductance"}
+
+    def factor(part: Part) -> float:
+        own = factors.get(part.name, 1.0)
+        if part.kind != "mutual inductance":
+            return own
+        beside = [factors[windings[fold(owner)]] for owner in part.references if fold(owner) in windings]
+        return own * float(np.sqrt(np.prod(beside)))
+
+    parts = tuple(replace(part, value=part.value * factor(part)) for part in network.parts)
     return assemble(parts, network.port, network.amplitudes)
 
 
@@ -67,7 +78,7 @@ def each_scaled(network: Network, midband: MidBand, edges: Edges, factor: float)
     """Give the band edges with one reactive part or line at a time multiplied by `factor`, by part name.
 
     edges: those of the unchanged network. The scan reaches ten times beyond them; where an edge is not found there,
-    that part's network is searched in full.
+    that part's network is searched in full. Couplings that are not loose have no entry.
     Raises NetworkError where a network has no unique solution.
     """
     terms = reactances(network)
@@ -80,8 +91,12 @@ def each_scaled(network: Network, midband: MidBand, edges: Edges, factor: float)
         return result
     frequency = _window(midband, edges)
     gain = np.abs(_each_response(network, terms, np.concatenate([[midband.frequency_hz], frequency]), factor))
+    tied = {fold(owner) for part in terms.parts for owner in part.references}
+    loose = loose_couplings(network)
     for k, part in enumerate(terms.parts):
-        if part.kind in ("block", "mutual inductance"):
+        if part.kind == "mutual inductance" and part.name not in loose:
+            continue
+        if part.kind in ("block", "mutual inductance") or fold(part.owner) in tied:
             # several terms at once are no change of rank one
             if part.name not in result:
                 result[part.name] = edge_frequencies(scaled(network, {part.name: factor}), midband)

@@ -25,7 +25,7 @@ from tauledger.network.first_order import follow_level
 from tauledger.network.identities import ON_THE_AXIS, Identity
 from tauledger.network.lines import line_moments
 from tauledger.network.midband import MidBand
-from tauledger.network.reactances import REACTIVE, moments, reactances, together
+from tauledger.network.reactances import REACTIVE, at_held_coupling, moments, reactances, together
 from tauledger.network.solve import Complex, Real, log_slope, on_axis, solve
 from tauledger.network.unity import HALF_TURN_DEG, Unity, find_unity
 
@@ -94,6 +94,7 @@ def log_sensitivity(network: Network, frequency_hz: Real) -> LogSensitivity:
     moved: dict[str, Complex] = {
         part.name: np.array([row[k] for row in reactive], dtype=complex) for k, part in enumerate(terms.distinct)
     }
+    moved = at_held_coupling(terms.distinct, moved)
     moved |= {name: -at.s * moment / at.response for name, moment in line_moments(network, at).items()}
     for part in network.parts:
         term = _resistive(network, part)
@@ -141,10 +142,11 @@ def unity_moves(network: Network, midband: MidBand, unity: Unity, f_high_hz: flo
 
 
 def unity_identities(network: Network, moves: UnityMoves) -> tuple[Identity, ...]:
-    """Σ ∂ln f_u over all that is reactive = −1, for scaling all of it scales frequency; none beside plain delays."""
+    """Σ ∂ln f_u over all that is reactive = −1 (k held), for that scales frequency; none beside plain delays."""
     if network.delayed:
         return ()
-    reactive = [moves.parts[part.name].f_unity for part in network.parts if part.kind in (*REACTIVE, "line")]
+    scales = [kind for kind in (*REACTIVE, "line") if kind != "mutual inductance"]
+    reactive = [moves.parts[part.name].f_unity for part in network.parts if part.kind in scales]
     scale = 1.0 + sum(abs(move) for move in reactive)
     return (Identity("shares of f_u add to 1", -sum(reactive), 1.0, ON_THE_AXIS, scale),)
 

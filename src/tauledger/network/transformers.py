@@ -11,6 +11,8 @@ from __future__ import annotations
 
 from collections.abc import Collection, Iterable
 
+import numpy as np
+
 from tauledger.circuit import GROUND, fold
 from tauledger.devices.family import inner_node
 from tauledger.devices.parts import Part, current_gain, inductance, voltage_gain
@@ -19,6 +21,7 @@ from tauledger.network.merge import joined_nodes
 
 # Below, as between two tuned circuits, nobody thinks in leakage and turns.
 CLOSE = 0.9
+LESS = 0.9
 NO_LEAKAGE = 1e-9
 MAGNETISING, LEAKAGE, TURNS, REFLECTED = "l_m", "l_leak", "turns", "reflected"
 
@@ -38,6 +41,35 @@ def drawn_out(network: Network) -> Network:
     for coupling, ends, _ in pairs:
         kept += _drawn(coupling, *ends, rest)
     return assemble(tuple(kept), network.port, network.amplitudes)
+
+
+def loose_couplings(network: Network) -> frozenset[str]:
+    """Name the mutual inductances of k < 0.9 that may be 10 % less with all else held.
+
+    Of a close coupling nobody takes 10 %: that would multiply its leakage. And among three windings one k bounds the
+    others, for the energy of no currents is below zero.
+    """
+    mutual = [part for part in network.parts if part.kind == "mutual inductance" and part.value]
+    if not mutual:
+        return frozenset()
+    windings = [part for part in network.parts if part.kind == "inductance"]
+    row = {fold(part.owner): k for k, part in enumerate(windings)}
+    henry = np.array([part.value for part in windings])
+    coupling = np.eye(len(windings))
+    places = {part.name: tuple(row[fold(owner)] for owner in part.references) for part in mutual}
+    for part in mutual:
+        a, b = places[part.name]
+        coupling[a, b] += part.value / np.sqrt(abs(henry[a] * henry[b]))
+        coupling[b, a] = coupling[a, b]
+
+    def exists(name: str) -> bool:
+        a, b = places[name]
+        less = coupling.copy()
+        less[a, b] *= LESS
+        less[b, a] = less[a, b]
+        return bool(abs(coupling[a, b]) < CLOSE and np.linalg.eigvalsh(less)[0] >= 0.0)
+
+    return frozenset(name for name in places if exists(name))
 
 
 def _pairs(network: Network) -> list[tuple[Part, tuple[Part, Part], tuple[str, ...]]]:
