@@ -11,7 +11,13 @@ from cells import near
 from compensated import TwoStages, network_of
 from tauledger.asked import Asked
 from tauledger.circuit import Port
-from tauledger.devices.parts import delayed_transconductance
+from tauledger.devices.parts import (
+    capacitance,
+    delayed_transconductance,
+    resistance,
+    transconductance,
+    voltage_source,
+)
 from tauledger.engine.client import Engine
 from tauledger.network.assemble import Network
 from tauledger.pipeline import review, review_network
@@ -97,14 +103,186 @@ def test_a_network_alone_has_the_budget_of_its_formulas() -> None:
     assert budget.rest_deg == pytest.approx(0.0, abs=1e-6)
 
 
-def test_an_amplifier_without_a_compensated_stage_has_two_coefficients(engine: Engine) -> None:
-    found = review(FIXTURES / "echo_preamp.cir", engine=engine, asked=Asked(unity=True))
-    budget = budget_of(found)
-    assert budget.stage == ""
-    assert budget.by_hand == ()
-    formulas = [one.hand_formula for one in budget.rows if one.hand_formula]
-    assert "1/(2π·b1)" in formulas
+def test_an_amplifier_without_a_compensated_stage_has_two_coefficients() -> None:
+    """Two time constants in a row, the longer first: no stage is bridged, and the load does not make that pole."""
+    parts = [
+        voltage_source("V1", "in", "0", 1.0),
+        transconductance("G1", ("0", "a"), ("in", "0"), 10e-3),
+        resistance("R1", "a", "0", 10e3),
+        capacitance("C1", "a", "0", 30e-12),
+        transconductance("G2", ("0", "out"), ("a", "0"), 10e-3),
+        resistance("R2", "out", "0", 5e3),
+        capacitance("C2", "out", "0", 3e-12),
+    ]
+    budget = budget_of(review_network(Network.from_parts(parts, output=Port("out"))))
+    assert (budget.stage, budget.by_hand) == ("", ())
+    assert "1/(2π·b1)" in [one.hand_formula for one in budget.rows]
     assert total(budget) == pytest.approx(180.0 - budget.margin_deg, abs=1e-9)
+
+
+def test_where_the_load_counts_in_the_dominant_pole_the_formula_has_it(engine: Engine) -> None:
+    """R2·(C_c + C_L) makes two fifths of b1 in the preamplifier."""
+    budget = budget_of(review(FIXTURES / "echo_preamp.cir", engine=engine, asked=Asked(unity=True)))
+    names = [one.name for one in budget.rows]
+    assert "dominant pole, load counted" in names
+    assert "second pole, load counted" in names
+    for name in ("dominant pole, load counted", "second pole, load counted"):
+        assert abs(row(budget, name).difference or 1.0) < 0.08
+    _, refined, margin = budget.by_hand
+    assert refined.hand == near(refined.exact, rel=0.03)
+    assert margin.hand == pytest.approx(margin.exact, abs=3.0)
+
+
+BUFFER = """a bridged stage between two resistors
+.model mn nmos level=1 vto=0.6 kp=90u lambda=0.05 tox=15n cgso=0.3n cgdo=0.3n
+VDD vdd 0 3.3
+VS s 0 dc 0.8 ac 1
+RS s g 30k
+M1 out g 0 0 mn w=25u l=1u
+RD vdd out 45k
+CF g out 0.8p
+CL out 0 1.2p
+.end
+"""
+
+
+def test_gm1_that_is_a_resistor_is_called_so_and_its_unity_gain_is_within_two_per_cent(
+    engine: Engine, tmp_path: Path
+) -> None:
+    budget = budget_of(of_text(BUFFER, engine, tmp_path))
+    single = budget.by_hand[0]
+    assert single.formula == "gm1·R1·A2/(2π·b1)"
+    assert single.values.startswith("gm1 = 1/RS = 33.3 µS")
+    assert single.hand == near(single.exact, rel=0.02)
+
+
+MODELS = """.model mn nmos level=1 vto=0.6 kp=100u lambda=0.05 gamma=0.4 phi=0.7 tox=15n cgso=0.3n cgdo=0.3n
+.model mp pmos level=1 vto=-0.7 kp=40u lambda=0.06 gamma=0.4 phi=0.7 tox=15n cgso=0.3n cgdo=0.3n
+"""
+TWO_STAGES = f"""two stages with a load that hangs at the bias line
+{MODELS}VDD vdd 0 2.5
+VSS vss 0 -2.5
+VIN inp 0 ac 1
+LB out inn 1G
+CB inn 0 1G
+IB bp vss 15u
+M9 bp bp vdd vdd mp w=20u l=1u
+M5 tail bp vdd vdd mp w=40u l=1u
+M1 n1 inn tail vdd mp w=60u l=1u
+M2 n2 inp tail vdd mp w=60u l=1u
+M3 n1 n1 vss vss mn w=15u l=1u
+M4 n2 n1 vss vss mn w=15u l=1u
+M6 out n2 vss vss mn w=300u l=1u
+M7 out bp vdd vdd mp w=400u l=1u
+CC n2 out 3p
+CL out 0 8p
+.end
+"""
+
+
+def of_text(text: str, engine: Engine, folder: Path, **asked: object) -> Review:
+    path = folder / "board.cir"
+    path.write_text(text, encoding="utf-8")
+    return review(path, engine=engine, asked=Asked(unity=True), **asked)  # type: ignore[arg-type]
+
+
+def test_a_pole_of_the_bias_line_has_no_formula_of_the_stage_nor_of_a_mirror(engine: Engine, tmp_path: Path) -> None:
+    budget = budget_of(of_text(TWO_STAGES, engine, tmp_path))
+    aside = [one for one in budget.rows if one.name == "pole off the signal path"]
+    assert aside
+    assert all(not one.hand_formula for one in aside)
+    assert "zero off the signal path" in [one.name for one in budget.rows]
+    assert not [one for one in budget.rows if "M9" in one.hand_values]
+    assert "M3" in row(budget, "mirror pole").hand_values
+
+
+def test_a_zero_through_c_gd_is_called_by_its_own_transistor(engine: Engine, tmp_path: Path) -> None:
+    budget = budget_of(of_text(TWO_STAGES, engine, tmp_path))
+    assert "M6" in row(budget, "zero, right half plane").hand_values
+    assert all("gm2" not in one.hand_formula for one in budget.rows if one.name.startswith("zero through"))
+
+
+def test_gm1_is_that_of_the_input_pair_and_not_of_its_mirror(engine: Engine, tmp_path: Path) -> None:
+    """A mirror of the same gm as the pair ends at the same node."""
+    budget = budget_of(of_text(TWO_STAGES.replace("w=15u", "w=24u"), engine, tmp_path))
+    assert "(M2)" in budget.by_hand[0].values
+
+
+OTA = f"""a pair with a mirror and a load
+{MODELS}VDD vdd 0 2.5
+VSS vss 0 -2.5
+VIN inp 0 ac 1
+LB out inn 1G
+CB inn 0 1G
+IT tail vss 30u
+M1 n1 inp tail vss mn w=30u l=1u
+M2 out inn tail vss mn w=30u l=1u
+M3 n1 n1 vdd vdd mp w=20u l=1u
+M4 out n1 vdd vdd mp w=20u l=1u
+CL out 0 3p
+.end
+"""
+FOLDED = f"""a folded cascode with a load
+{MODELS}VDD vdd 0 3.3
+VIN inp 0 dc 1.4 ac 1
+LB out inn 1G
+CB inn 0 1G
+IT tail 0 80u
+M1 f1 inp tail 0 mn w=50u l=1u
+M2 f2 inn tail 0 mn w=50u l=1u
+IF1 vdd f1 80u
+IF2 vdd f2 80u
+VC c 0 1.9
+M3 g1 c f1 vdd mp w=60u l=1u
+M4 out c f2 vdd mp w=60u l=1u
+CF1 f1 0 150f
+CF2 f2 0 150f
+M5 g1 g1 0 0 mn w=15u l=1u
+M6 out g1 0 0 mn w=15u l=1u
+CL out 0 2p
+.end
+"""
+
+
+@pytest.mark.parametrize(("text", "further"), [(OTA, "mirror pole"), (FOLDED, "pole of a cascode's source")])
+def test_where_the_load_makes_the_dominant_pole_unity_gain_is_gm1_over_c_l(
+    text: str, further: str, engine: Engine, tmp_path: Path
+) -> None:
+    budget = budget_of(of_text(text, engine, tmp_path))
+    assert budget.stage == "no compensated stage, the load at out makes the dominant pole"
+    assert abs(row(budget, "pole of the load").difference or 1.0) < 0.02
+    assert further in [one.name for one in budget.rows]
+    single, refined, margin = budget.by_hand
+    assert single.formula == "gm1/(2π·C_L)"
+    assert "(M1)" in single.values
+    assert single.hand == near(single.exact, rel=0.05)
+    assert refined.hand == near(refined.exact, rel=0.05)
+    assert margin.hand == pytest.approx(margin.exact, abs=4.0)
+
+
+BALANCED = f"""both halves of a balanced amplifier are its output
+{MODELS}VDD vdd 0 3
+VP ip 0 dc 1.5 ac 0.5
+VN in 0 dc 1.5 ac -0.5
+IT t 0 80u
+M1 on ip t 0 mn w=30u l=1u
+M2 op in t 0 mn w=30u l=1u
+M3 on cm vdd vdd mp w=50u l=1u
+M4 op cm vdd vdd mp w=50u l=1u
+R1 on cm 150k
+R2 op cm 150k
+C1 on 0 2p
+C2 op 0 2p
+.end
+"""
+
+
+def test_half_of_gm1_goes_to_either_side_of_a_balanced_output(engine: Engine, tmp_path: Path) -> None:
+    budget = budget_of(of_text(BALANCED, engine, tmp_path, output="v(op,on)"))
+    single = budget.by_hand[0]
+    assert "half of M2's" in single.values
+    assert "times 2 from op to the output" in single.values
+    assert single.hand == near(single.exact, rel=0.02)
 
 
 def test_no_budget_without_a_section_on_unity_gain(engine: Engine) -> None:

@@ -12,21 +12,28 @@ from tauledger.answers.answer import Subject
 from tauledger.hand.compensated import CompensatedStage, dominant_hz, find_compensated_stage
 from tauledger.hand.compensation import (
     DOMINANT_POLE,
-    MIRROR_POLE,
+    LOAD_POLE,
+    LOADED_POLE,
     PHASE_MARGIN,
     UNITY_GAIN,
+    UNITY_GAIN_LOADED,
+    UNITY_GAIN_OF_LOAD,
     UNITY_GAIN_WITH_ROOTS,
+    Formula,
+    load_pole_hz,
     phase_used_deg,
     unity_gain_hz,
     unity_gain_with_roots_hz,
 )
-from tauledger.hand.equivalent import upper_circuit
+from tauledger.hand.equivalent import EquivalentCircuit, upper_circuit
 from tauledger.hand.estimate import HandEstimate
+from tauledger.hand.load_compensated import LoadedOutput, find_loaded_output
 from tauledger.hand.mirror import find_mirror, half_circuit
 from tauledger.hand.poles import HandPole
-from tauledger.hand.roots import ExactRoot, HandRoot, belonging, hand_roots
+from tauledger.hand.roots import OWNS, ExactRoot, HandRoot, belonging, hand_roots
 from tauledger.network.identities import check
 from tauledger.network.phase import PhaseUse, PhaseUsed, phase_identities, phase_used
+from tauledger.network.poles import Pole
 from tauledger.network.unity import HALF_TURN_DEG
 from tauledger.numbers import Numbers
 from tauledger.quantity import engineering
@@ -37,6 +44,9 @@ WITH_A_FORMULA_DEG = 0.1
 SAME = 0.02
 # Beyond a gain of this from the stage's output on, another stage follows, and its poles are not those of paper here.
 FOLLOWED_BY = (0.3, 2.1)
+DOMINANT = (DOMINANT_POLE.name, LOADED_POLE.name)
+# A pole that capacitances off the signal path own, and the zero beside it.
+OWNED_ASIDE, DOUBLET = 0.5, 0.3
 UNITY_FROM_ONE = 0.01
 
 
@@ -55,7 +65,8 @@ def phase_budget(found: Review, subject: Subject) -> PhaseBudget | None:
     check(phase_identities(used, used_deg, rational=_rational(numbers)))
     paper = paper_roots(subject)
     stage, by_hand = paper.stage, paper.roots
-    shown, rows = _rows(used, by_hand, subject.explanation.hand_poles, mid, hz)
+    shown, rows = _rows(used, paper, subject.explanation.hand_poles, mid, hz)
+    rows = _set_aside(rows, shown, _off_the_path(subject))
     rest = [one for one in (*used.poles, *used.zeros) if one not in shown]
     # what measuring aids make far below the band are poles and zeros too, which the map leaves out
     of_aids = used.rest if not (numbers.network.delayed or numbers.network.lines) else 0.0
@@ -66,17 +77,21 @@ def phase_budget(found: Review, subject: Subject) -> PhaseBudget | None:
         others=len(rest),
         others_deg=sum(one.degrees for one in rest) + of_aids,
         rest_deg=used.rest - of_aids,
-        stage="" if stage is None or not _makes_a_pole(rows) else _stage_text(stage),
-        by_hand=() if stage is None else _steps(stage, by_hand, rows, hz, margin),
+        stage=_stage_text(stage) if stage is not None and _makes_a_pole(rows) else _load_text(paper.load, rows),
+        by_hand=_steps(_single(paper, rows), by_hand, rows, hz, margin),
     )
 
 
 class PaperRoots(Struct, frozen=True):
-    """The compensated stage, or None, and the poles and zeros that paper knows; halves: of one half circuit of two."""
+    """The compensated stage, or None, and the poles and zeros that paper knows; halves: of one half circuit of two.
+
+    load: the output, where what stands there makes the dominant pole instead.
+    """
 
     stage: CompensatedStage | None
     roots: tuple[HandRoot, ...]
     halves: bool
+    load: LoadedOutput | None = None
 
 
 def paper_roots(subject: Subject) -> PaperRoots:
@@ -90,7 +105,47 @@ def paper_roots(subject: Subject) -> PaperRoots:
     if mirror is not None:
         circuit = half_circuit(circuit, mirror)
     stage = find_compensated_stage(circuit, _resistances(hand), whole)
-    return PaperRoots(stage, hand_roots(circuit, stage), mirror is not None)
+    load = _load(circuit, whole, numbers, halves=mirror is not None)
+    if load is not None:
+        stage = None
+    return PaperRoots(stage, hand_roots(circuit, stage, load), mirror is not None, load)
+
+
+def _load(circuit: EquivalentCircuit, response: complex, numbers: Numbers, *, halves: bool) -> LoadedOutput | None:
+    mid = 2.0 * math.pi * numbers.midband.frequency_hz
+    poles = [pole for pole in numbers.poles.poles if not pole.cancelled and abs(pole.s) > mid]
+    first = min(poles, key=lambda pole: abs(pole.s), default=None)
+    if first is None or first.paired:
+        return None
+    return find_loaded_output(circuit, response, abs(first.s) / (2.0 * math.pi), first.owners, halves=halves)
+
+
+def _off_the_path(subject: Subject) -> frozenset[str]:
+    """Give the capacitances of which neither end is a node that the signal crosses."""
+    hand = subject.explanation.hand
+    if hand is None:
+        return frozenset()
+    crossed = {member for node in hand.nodes if node.in_path for member in node.members}
+    parts = subject.numbers.network.parts
+    return frozenset(p.name for p in parts if p.kind == "capacitance" and not crossed & set(p.nodes))
+
+
+def _set_aside(rows: tuple[PhaseRow, ...], shown: Sequence[PhaseUse], aside: frozenset[str]) -> tuple[PhaseRow, ...]:
+    """Say of a pole without a formula that parts off the path own, and of the zero beside it, where they belong."""
+    zeros = [k for k, one in enumerate(shown) if rows[k].kind == "zero" and not rows[k].hand_formula]
+    named: set[int] = set()
+    for k, one in enumerate(shown):
+        if rows[k].kind != "pole" or rows[k].hand_formula or not isinstance(one.root, Pole):
+            continue
+        if sum(part for name, part in one.root.owners.items() if name in aside) < OWNED_ASIDE:
+            continue
+        p = one.root.s
+        near = min((z for z in zeros if z not in named), key=lambda z: abs(shown[z].root.s - p), default=None)
+        if near is not None and abs(shown[near].root.s - p) <= DOUBLET * abs(p):
+            named |= {k, near}
+    return tuple(
+        replace(row, name=f"{row.name} off the signal path") if k in named else row for k, row in enumerate(rows)
+    )
 
 
 def _rational(numbers: Numbers) -> bool:
@@ -103,15 +158,20 @@ def _resistances(hand: HandEstimate) -> Mapping[str, float]:
 
 
 def _rows(
-    used: PhaseUsed, by_hand: Sequence[HandRoot], two: Sequence[HandPole], mid_hz: float, hz: float
+    used: PhaseUsed, paper: PaperRoots, two: Sequence[HandPole], mid_hz: float, hz: float
 ) -> tuple[list[PhaseUse], tuple[PhaseRow, ...]]:
     """Give the roots that have a row of their own, and the rows, the lowest first."""
     seen = [
-        *((one, ExactRoot("pole", one.root.s, one.paired)) for one in used.poles if _is_seen(one)),
+        *(
+            (one, ExactRoot("pole", one.root.s, one.paired, one.root.owners if isinstance(one.root, Pole) else {}))
+            for one in used.poles
+            if _is_seen(one)
+        ),
         *((one, ExactRoot("zero", one.root.s, one.paired)) for one in used.zeros if _is_seen(one)),
     ]
     seen.sort(key=lambda pair: (abs(pair[1].s), pair[1].kind))
-    formulas = belonging([root for _, root in seen], by_hand)
+    # the other half owns as much of a pole of both
+    formulas = belonging([root for _, root in seen], paper.roots, owns=OWNS / 2.0 if paper.halves else OWNS)
     of_two = {one.pole: one for one in two if one.hz is not None}
     rows: list[PhaseRow] = []
     shown: list[PhaseUse] = []
@@ -175,7 +235,7 @@ def _of_two_coefficients(one: PhaseUse, root: ExactRoot, by_hand: HandPole, mid_
 
 
 def _makes_a_pole(rows: Sequence[PhaseRow]) -> bool:
-    return any(DOMINANT_POLE.written in row.hand_formula or DOMINANT_POLE.name in row.hand_formula for row in rows)
+    return any(row.name == name or name in row.hand_formula for row in rows for name in DOMINANT)
 
 
 def _stage_text(stage: CompensatedStage) -> str:
@@ -184,48 +244,99 @@ def _stage_text(stage: CompensatedStage) -> str:
     return f"{', '.join(stage.owners)}, bridged by {', '.join(stage.capacitors)}{series} {across}"
 
 
-def _steps(
-    stage: CompensatedStage, by_hand: Sequence[HandRoot], rows: Sequence[PhaseRow], hz: float, margin: float
-) -> tuple[UnityStep, ...]:
-    """Give f_u from gm1 and C_c, f_u with the further roots, and the margin; nothing where the stage makes no f_u."""
-    known = {row.hand_formula for row in rows}
+def _load_text(load: LoadedOutput | None, rows: Sequence[PhaseRow]) -> str:
+    if load is None or all(row.name != LOAD_POLE.name for row in rows):
+        return ""
+    return f"no compensated stage, the load at {load.name} makes the dominant pole"
+
+
+class _Single(Struct, frozen=True):
+    """f_u of the dominant pole alone: its formula with the operands, Hz, and the dominant pole by hand in Hz.
+
+    sends: what gm1 stands for, where it is not quite that of its transistor.
+    """
+
+    formula: Formula
+    values: str
+    hz: float
+    pole_hz: float
+    sends: str = ""
+
+
+def _single(paper: PaperRoots, rows: Sequence[PhaseRow]) -> _Single | None:
+    """Give f_u of the dominant pole alone; None where neither the stage nor the load makes the dominant pole."""
+    known = {row.name for row in rows}
+    stage, load = paper.stage, paper.load
     low, high = FOLLOWED_BY
-    if DOMINANT_POLE.written not in known or not low <= stage.to_output <= high:
+    if load is not None and LOAD_POLE.name in known:
+        values = f"gm1 = {engineering(load.gm_1, 'S', 3)} ({load.first or 'drive to output'})"
+        values += f", C_L = {engineering(load.c_l, 'F', 3)} at {load.name}" + _times(load.between, load.name)
+        hz = unity_gain_hz(load.gm_1 * load.between, load.c_l)
+        sends = ""
+        if abs(load.gm_1 / load.sent - 1.0) > SAME / 2.0:
+            sends = f"1 V of drive sends {engineering(load.sent, 'A', 3)} to {load.name}, not gm1 alone"
+        return _Single(UNITY_GAIN_OF_LOAD, values, hz, load_pole_hz(load.r_out, load.c_l), sends)
+    if stage is None or not known & set(DOMINANT) or not low <= stage.to_output <= high:
+        return None
+    pole = dominant_hz(stage)
+    gm_1 = engineering(stage.gm_1, "S", 3)
+    who = stage.first or f"what drives {stage.input_name}"
+    values = f"gm1 = {who} = {gm_1}" if who.startswith("1/") else f"gm1 = {gm_1} ({who})"
+    if stage.loaded:
+        values += f", R1 = {engineering(stage.r_1, 'Ω', 3)}, A2 = {stage.a_2:.3g}, b1 = "
+        values += engineering(1.0 / (2.0 * math.pi * pole), "s", 3)
+        hz = stage.gm_1 * stage.r_1 * stage.a_2 * stage.to_output * pole
+        return _Single(UNITY_GAIN_LOADED, values + _times(stage.to_output, stage.output_name), hz, pole)
+    values += f", C_c = {engineering(stage.across, 'F', 3)}" + _times(stage.to_output, stage.output_name)
+    return _Single(UNITY_GAIN, values, unity_gain_hz(stage.gm_1 * stage.to_output, stage.across), pole)
+
+
+def _times(gain: float, name: str) -> str:
+    return f", times {gain:.3g} from {name} to the output" if abs(gain - 1.0) > UNITY_FROM_ONE else ""
+
+
+def _steps(
+    single: _Single | None, by_hand: Sequence[HandRoot], rows: Sequence[PhaseRow], hz: float, margin: float
+) -> tuple[UnityStep, ...]:
+    """Give f_u of the dominant pole alone, f_u with the further roots, and the margin."""
+    if single is None:
         return ()
+    known = {values for row in rows for values in row.hand_values.split("; ")}
     counted = [
         one
         for one in by_hand
-        if one.formula is not DOMINANT_POLE
+        if one.formula.name not in (*DOMINANT, LOAD_POLE.name)
         # the mirror's zero belongs to its pole: where the one is seen, paper counts both
-        and (one.of == "stage" or (one.of == "mirror" and MIRROR_POLE.written in known))
+        and (one.of == "stage" or (one.of in ("mirror", "cascode") and one.values in known))
     ]
     poles = [one.hz for one in counted if one.kind == "pole"]
     zeros = [one.hz for one in counted if one.kind == "zero"]
-    single = unity_gain_hz(stage.gm_1 * stage.to_output, stage.across)
-    refined = unity_gain_with_roots_hz(single, poles, zeros)
-    who = stage.first or f"what drives {stage.input_name}"
-    values = f"gm1 = {engineering(stage.gm_1, 'S', 3)} ({who}), C_c = {engineering(stage.across, 'F', 3)}"
-    if abs(stage.to_output - 1.0) > UNITY_FROM_ONE:
-        values += f", times {stage.to_output:.3g} from {stage.output_name} to the output"
-    steps = [UnityStep("f_u", "Hz", UNITY_GAIN.written, values, single, hz, _why_single(single, hz, counted))]
-    if refined is None:
+    refined = unity_gain_with_roots_hz(single.hz, poles, zeros)
+    why = _why_single(single, refined, hz, counted)
+    steps = [UnityStep("f_u", "Hz", single.formula.written, single.values, single.hz, hz, why)]
+    if refined is None or (not counted and single.formula is UNITY_GAIN_OF_LOAD):
         return tuple(steps)
     steps.append(UnityStep("f_u", "Hz", UNITY_GAIN_WITH_ROOTS.written, "", refined, hz, ""))
-    by_paper = HALF_TURN_DEG - phase_used_deg(refined, [dominant_hz(stage), *poles], zeros)
+    by_paper = HALF_TURN_DEG - phase_used_deg(refined, [single.pole_hz, *poles], zeros)
     why = _why_margin(by_paper - margin, rows)
     steps.append(UnityStep("phase margin", "°", PHASE_MARGIN.written, "", by_paper, margin, why))
     return tuple(steps)
 
 
-def _why_single(single: float, hz: float, roots: Sequence[HandRoot]) -> str:
-    """Say which pole or zero moves f_u away from that of the dominant pole alone."""
-    if abs(single / hz - 1.0) <= SAME or not roots:
+def _why_single(single: _Single, refined: float | None, hz: float, roots: Sequence[HandRoot]) -> str:
+    """Say which pole or zero moves f_u away from that of the dominant pole alone, or what gm1 leaves out."""
+    off = math.log(hz / single.hz)
+    if abs(single.hz / hz - 1.0) <= SAME:
         return ""
-    kind = "pole" if hz < single else "zero"
+    moved = math.log(refined / single.hz) if refined is not None else off
+    # the further roots must explain at least half of it
+    if moved * off <= 0.0 or abs(moved) < 0.5 * abs(off):
+        return single.sends
+    kind = "pole" if hz < single.hz else "zero"
     nearest = min((root for root in roots if root.kind == kind), key=lambda root: abs(root.hz), default=None)
     if nearest is None:
-        return ""
-    ratio = abs(nearest.hz) / single
+        return single.sends
+    ratio = abs(nearest.hz) / single.hz
     where = "sits below it" if ratio < 1.0 else f"sits at {ratio:.2g} times it"
     return f"the {nearest.formula.name}, {engineering(abs(nearest.hz), 'Hz', 3)}, {where}"
 

@@ -13,7 +13,7 @@ from collections.abc import Iterator, Mapping
 from msgspec import Struct
 
 from tauledger.circuit import GROUND
-from tauledger.hand.compensation import dominant_pole_hz
+from tauledger.hand.compensation import dominant_pole_hz, loaded_pole_hz
 from tauledger.hand.elements import Capacitor, Cell, Resistor
 from tauledger.hand.equivalent import EquivalentCircuit
 from tauledger.hand.nodes import groups, node_name
@@ -25,6 +25,10 @@ INVERTS = -5.0
 # Capacitance to elsewhere at the node between R_z and C_c, against C_c: more of it and they are not in series.
 STRAY = 0.1
 AS_ONE_DEVICE = 0.01
+# Drive by resistors and by mirrors that are a little uneven: still the gm of the input transistor.
+AS_INPUT_DEVICE = 0.05
+# The load's own R2·(C_c + C_L) is left out on paper below this part of the whole constant.
+LOAD_COUNTS = 0.03
 
 
 class Places(Struct, frozen=True):
@@ -52,8 +56,10 @@ class CompensatedStage(Struct, frozen=True):
     first at the input. gm_2: S, from input to output. a_2: its gain by size.
     capacitors: names of the parts that are C_c, the largest first; c_c: F in series with r_z. c_direct: F straight
     across beside a branch with r_z, else 0. r_z: ohm, 0 without; resistor: its name.
-    r_1: ohm at the input. c_1, c_l: F from input and output to elsewhere. gm_1: S that feeds the input; first: the
-    transistor whose gm that is, empty where it is no single one's. to_output: gain by size from the stage's output on.
+    r_1, r_2: ohm at the input, and at the output with the input held. c_1, c_l: F from input and output to elsewhere.
+    gm_1: S that feeds the input; first: the transistor whose gm that is, or "1/RS" of a resistor, empty where it is no
+    single one's. to_output: gain by size from the stage's output on. parts: names of all capacitances that are in C1,
+    C_c or C_L.
     """
 
     input: str
@@ -74,11 +80,19 @@ class CompensatedStage(Struct, frozen=True):
     gm_1: float
     first: str
     to_output: float
+    r_2: float
+    parts: frozenset[str]
 
     @property
     def across(self) -> float:
         """All that bridges the stage, F."""
         return self.c_c + self.c_direct
+
+    @property
+    def loaded(self) -> bool:
+        """Whether R2·(C_c + C_L) counts in the dominant pole."""
+        load = self.r_2 * (self.across + self.c_l)
+        return load > LOAD_COUNTS * (self.r_1 * (self.c_1 + self.across * (1.0 + self.a_2)) + load)
 
 
 class _Branch(Struct, frozen=True):
@@ -116,7 +130,9 @@ def find_compensated_stage(
 
 
 def dominant_hz(stage: CompensatedStage) -> float:
-    """Give the stage's dominant pole by hand in Hz."""
+    """Give the stage's dominant pole by hand in Hz; with the load's own constant where that counts."""
+    if stage.loaded:
+        return loaded_pole_hz(stage.r_1, stage.c_1, stage.across, stage.a_2, stage.r_2, stage.c_l)
     return dominant_pole_hz(stage.r_1, stage.c_1, stage.across, stage.a_2)
 
 
@@ -130,9 +146,14 @@ def farads_at(circuit: EquivalentCircuit, places: Places, place: str, without: f
     """Give the capacitance in F from a place to all others, taken as standing still; a mirror image counts twice."""
     return sum(
         capacitor.farad * (2.0 if capacitor.mirrored else 1.0)
-        for capacitor in circuit.capacitors
-        if place in (ends := places.ends(capacitor)) and len(ends) > 1 and capacitor.part not in without
+        for capacitor in capacitors_at(circuit, places, place)
+        if capacitor.part not in without
     )
+
+
+def capacitors_at(circuit: EquivalentCircuit, places: Places, place: str) -> tuple[Capacitor, ...]:
+    """Give the capacitances from a place to all others."""
+    return tuple(c for c in circuit.capacitors if place in (ends := places.ends(c)) and len(ends) > 1)
 
 
 def _inverting(circuit: EquivalentCircuit, places: Places) -> tuple[_Inverting, ...]:
@@ -184,7 +205,7 @@ def _stage(
         return None
     named = frozenset(c.part for one in (across, branch) for c in one.capacitors)
     norton = float(abs(circuit.voltage[i])) / abs(z_in)
-    first = _feeding(circuit, places, here, norton)
+    gm_1, first = input_device(circuit, places, here, norton)
     reached = float(abs(circuit.voltage[k]))
     series = branch.resistor
     return CompensatedStage(
@@ -203,9 +224,11 @@ def _stage(
         r_1=resistance_ohm.get(start, abs(z_in)),
         c_1=farads_at(circuit, places, here, named),
         c_l=farads_at(circuit, places, there, named),
-        gm_1=norton if first is None else abs(first.gm),
-        first="" if first is None else first.owner,
+        gm_1=gm_1,
+        first=first or _resistor_of(circuit, places, here, norton),
         to_output=abs(response) / reached if reached else math.nan,
+        r_2=z_out,
+        parts=frozenset(c.part for at in (here, there) for c in capacitors_at(circuit, places, at)) | named,
     )
 
 
@@ -234,11 +257,46 @@ def _gm_of(circuit: EquivalentCircuit, owners: tuple[str, ...], transfer: float)
     return alone if abs(alone - transfer) <= AS_ONE_DEVICE * abs(transfer) else transfer
 
 
-def _feeding(circuit: EquivalentCircuit, places: Places, place: str, norton: float) -> Cell | None:
-    """Give the transistor whose current goes to this place and whose gm is what the drive makes of it there."""
-    fits = [
-        cell
-        for cell in circuit.cells
-        if places.of(cell.output) == place and abs(abs(cell.gm) - norton) <= AS_ONE_DEVICE * norton
-    ]
-    return fits[0] if fits else None
+def input_device(circuit: EquivalentCircuit, places: Places, place: str, norton: float) -> tuple[float, str]:
+    """Give gm1 in S and whose it is: of the transistor whose gm, or half of it, is what the drive sends to a place.
+
+    A mirror's output and a current source bring current there too, but their controls are no input. Without such a
+    transistor gm1 is `norton` itself, and no name.
+    """
+    ending = [c for c in circuit.cells if places.of(c.output) == place and not _mirrors(circuit, places, c)]
+    through = {places.of(c.common) for c in ending} - {GROUND}
+    near = [c for c in circuit.cells if {places.of(c.common), places.of(c.output)} & through]
+    folded = {places.of(c.common) for c in near} - {GROUND}
+    far = [c for c in circuit.cells if places.of(c.common) in folded]
+    for part, said in ((1.0, "{}"), (0.5, "half of {}'s")):
+        for cell in (*ending, *near, *far):
+            gm = part * abs(cell.gm)
+            known = abs(gm - norton) <= AS_INPUT_DEVICE * norton
+            if known and _moved(circuit, cell) and not _mirrors(circuit, places, cell):
+                return gm, said.format(cell.owner)
+    return norton, ""
+
+
+def _moved(circuit: EquivalentCircuit, cell: Cell) -> bool:
+    """Whether the drive moves the control of a transistor."""
+    if cell.control != GROUND:
+        return bool(abs(circuit.voltage[circuit.row[cell.control]]) > 0.0)
+    outer = [t.netlist_node for t in circuit.terminals if t.owner == cell.owner and t.word == cell.words[0]]
+    return not outer or outer[0] in circuit.driven
+
+
+def _mirrors(circuit: EquivalentCircuit, places: Places, cell: Cell) -> bool:
+    """Whether a transistor's control hangs at a diode: a mirror, its diode, or a current source."""
+    at = places.of(cell.control)
+    return at != GROUND and any(places.of(c.control) == at == places.of(c.output) for c in circuit.cells)
+
+
+def _resistor_of(circuit: EquivalentCircuit, places: Places, place: str, norton: float) -> str:
+    """Give "1/RS" where what feeds a place is the drive, or half of it, through a resistor."""
+    for resistor in circuit.resistors:
+        if places.ends(resistor) != {place, GROUND}:
+            continue
+        for part, said in ((1.0, "1/{}"), (2.0, "1/(2·{})")):
+            if abs(part * norton * resistor.ohm - 1.0) <= AS_ONE_DEVICE:
+                return said.format(resistor.name)
+    return ""

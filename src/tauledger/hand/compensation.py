@@ -35,17 +35,41 @@ DOMINANT_POLE = Formula(
     "R1 and C1 at the input of the compensated stage, A2 its gain; the load's own R2·(C_L + C_c) is left out",
     f"{GRAY}, sec. 7.3.6 and 9.4.2",
 )
+LOADED_POLE = Formula(
+    "dominant pole, load counted",
+    "1/(2π·(R1·(C1 + C_c·(1 + A2)) + R2·(C_c + C_L)))",
+    "R2 at the output of the stage; where C1 and C_c at the input do not make nearly all of b1",
+    f"{GRAY}, sec. 7.3.6 and 9.4.2 (eq. 9.28, from memory)",
+)
 SECOND_POLE = Formula(
     "second pole",
     "gm2·C_c/(2π·(C1·C_L + C_c·(C1 + C_L)))",
     "A2 far above 1 and the poles far apart; C_c joins input and output of the stage there",
     f"{GRAY}, sec. 9.4.2 (eq. 9.33)",
 )
+LOADED_SECOND_POLE = Formula(
+    "second pole, load counted",
+    "b1/(2π·R1·R2·(C1·C_L + C_c·(C1 + C_L)))",
+    "b1 = R1·(C1 + C_c·(1 + A2)) + R2·(C_c + C_L); the poles far apart",
+    f"{GRAY}, sec. 7.3.6 and 9.4.2 (eq. 9.30, from memory)",
+)
 RIGHT_HALF_PLANE_ZERO = Formula(
     "zero, right half plane",
     "gm2/(2π·C_c)",
     "nothing in series with C_c; what passes forward through C_c cancels gm2 there",
     f"{GRAY}, sec. 9.4.2 (eq. 9.27)",
+)
+GATE_DRAIN_ZERO = Formula(
+    "zero through C_gd",
+    "gm/(2π·C_gd)",
+    "a transistor of the signal path with its source at AC ground and nothing in series with C_gd; right half plane",
+    f"{GRAY}, sec. 7.2.1",
+)
+BASE_COLLECTOR_ZERO = Formula(
+    "zero through C_μ",
+    "gm/(2π·C_μ)",
+    "a transistor of the signal path with its emitter at AC ground and nothing in series with C_μ; right half plane",
+    f"{GRAY}, sec. 7.2.1",
 )
 NULLED_ZERO = Formula(
     "zero of the nulling resistor",
@@ -63,6 +87,12 @@ MIRROR_POLE = Formula(
     "mirror pole",
     "gm/(2π·C_m), C_m = 2·C_gs",
     "C_m all capacitance at the mirror's input; half of the signal passes the mirror",
+    f"{GRAY}, sec. 7.3.5",
+)
+BIPOLAR_MIRROR_POLE = Formula(
+    "mirror pole",
+    "gm/(2π·C_m), C_m = 2·C_π",
+    "C_m all capacitance at the mirror's input; half of the signal passes the mirror; current gain far above 1",
     f"{GRAY}, sec. 7.3.5",
 )
 MIRROR_ZERO = Formula(
@@ -89,6 +119,30 @@ BRIDGED_RESISTOR_ZERO = Formula(
     "C beside R, both in the signal path; left half plane",
     "common practice",
 )
+LOAD_POLE = Formula(
+    "pole of the load",
+    "1/(2π·R_out·C_L)",
+    "C_L all capacitance at the output, R_out all resistance there; no node before it nearly as slow",
+    f"{GRAY}, sec. 9.4.1 and 6.7 (from memory)",
+)
+CASCODE_POLE = Formula(
+    "pole of a cascode's source",
+    "(gm + g_mb)/(2π·C_node)",
+    "C_node all capacitance at the source (emitter) of the cascode or folded cascode",
+    f"{GRAY}, sec. 7.3.4 and 6.7 (from memory)",
+)
+UNITY_GAIN_OF_LOAD = Formula(
+    "unity gain frequency",
+    "gm1/(2π·C_L)",
+    "one pole alone below it, that of the load; gm1 is what 1 V of drive sends to the output",
+    f"{GRAY}, sec. 9.4.1 and 6.7 (from memory)",
+)
+UNITY_GAIN_LOADED = Formula(
+    "unity gain frequency",
+    "gm1·R1·A2/(2π·b1)",
+    "b1 = R1·(C1 + C_c·(1 + A2)) + R2·(C_c + C_L): A2 not far above 1 or the load not far below C_c·A2",
+    f"{GRAY}, sec. 7.3.6 (from memory)",
+)
 UNITY_GAIN = Formula(
     "unity gain frequency",
     "gm1/(2π·C_c)",
@@ -109,16 +163,25 @@ PHASE_MARGIN = Formula(
 )
 FORMULAS: tuple[Formula, ...] = (
     DOMINANT_POLE,
+    LOADED_POLE,
     SECOND_POLE,
+    LOADED_SECOND_POLE,
     RIGHT_HALF_PLANE_ZERO,
+    GATE_DRAIN_ZERO,
+    BASE_COLLECTOR_ZERO,
     NULLED_ZERO,
     THIRD_POLE,
     MIRROR_POLE,
+    BIPOLAR_MIRROR_POLE,
     MIRROR_ZERO,
     FOLLOWER_ZERO,
     DEGENERATION_ZERO,
     BRIDGED_RESISTOR_ZERO,
+    LOAD_POLE,
+    CASCODE_POLE,
+    UNITY_GAIN_OF_LOAD,
     UNITY_GAIN,
+    UNITY_GAIN_LOADED,
     UNITY_GAIN_WITH_ROOTS,
     PHASE_MARGIN,
 )
@@ -130,6 +193,33 @@ def dominant_pole_hz(r_1: float, c_1: float, c_c: float, a_2: float) -> float:
     Source: Gray, Hurst, Lewis and Meyer, 5th ed., 2009, sec. 7.3.6.
     """
     return 1.0 / (TWO_PI * r_1 * (c_1 + c_c * (1.0 + a_2)))
+
+
+def loaded_pole_hz(r_1: float, c_1: float, c_c: float, a_2: float, r_2: float, c_l: float) -> float:
+    """Give 1/(2π·(R1·(C1 + C_c·(1 + A2)) + R2·(C_c + C_L))) in Hz; ohm and F.
+
+    Source: Gray, Hurst, Lewis and Meyer, 5th ed., 2009, sec. 7.3.6 and 9.4.2 (from memory).
+    """
+    return 1.0 / (TWO_PI * (r_1 * (c_1 + c_c * (1.0 + a_2)) + r_2 * (c_c + c_l)))
+
+
+def loaded_second_pole_hz(r_1: float, c_1: float, c_c: float, a_2: float, r_2: float, c_l: float) -> float:
+    """Give b1/(2π·R1·R2·(C1·C_L + C_c·(C1 + C_L))) in Hz, infinite without C1 and C_L; ohm and F.
+
+    Source: Gray, Hurst, Lewis and Meyer, 5th ed., 2009, sec. 7.3.6 and 9.4.2 (from memory).
+    """
+    b_2 = r_1 * r_2 * (c_1 * c_l + c_c * (c_1 + c_l))
+    return 1.0 / (TWO_PI**2 * loaded_pole_hz(r_1, c_1, c_c, a_2, r_2, c_l) * b_2) if b_2 else math.inf
+
+
+def load_pole_hz(r_out: float, c_l: float) -> float:
+    """Give 1/(2π·R_out·C_L) in Hz; ohm and F. Source: Gray, Hurst, Lewis and Meyer, sec. 9.4.1 (from memory)."""
+    return 1.0 / (TWO_PI * r_out * c_l)
+
+
+def cascode_pole_hz(gm: float, g_mb: float, c_node: float) -> float:
+    """Give (gm + g_mb)/(2π·C_node) in Hz; S and F. Source: Gray, Hurst, Lewis and Meyer, sec. 7.3.4 (from memory)."""
+    return (gm + g_mb) / (TWO_PI * c_node)
 
 
 def second_pole_hz(gm_2: float, c_1: float, c_l: float, c_c: float) -> float:
