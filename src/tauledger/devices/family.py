@@ -14,6 +14,8 @@ from tauledger.circuit import Circuit, Element, Model
 from tauledger.devices.parts import Part
 from tauledger.solution import Bias, Isolation, Observation
 
+# S across every junction, where `.options gmin` does not say otherwise.
+GMIN = 1e-12
 # Letters of devices that may have nodes of their own behind series resistances.
 WITH_INNER_NODES = frozenset("QDJMZ")
 

@@ -36,9 +36,11 @@ Index = NDArray[np.intp]
 # An inner node that moves less than this many volt per volt is at rest. Some models have nodes that stand for charges
 # or currents and move by 1e-13; they are looked at only where the fit does not do without.
 AT_REST = (1e-9, 1e-14, 1e-19)
+# What nodes that move together differ by is rounding of the engine's answer: a singular value this small is no state.
 SAME_STATE = 1e-9
 # Rows of states beyond this are weighted down: there ω·C alone is left of them.
 HIGH_HZ = 1e10
+# Scale of the states' own rows, of no effect at the terminals; that of a board keeps the matrices well scaled.
 STATE_SIEMENS = 1e-3
 # Error against the frequencies that the check leaves out, relative to the largest entry of Y there.
 ACCEPTED = 1e-8

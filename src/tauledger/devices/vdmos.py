@@ -18,7 +18,7 @@ import math
 from msgspec.structs import replace
 
 from tauledger.circuit import GROUND, Circuit, Element, Model
-from tauledger.devices.family import Device, Family, Refusal, Terminal, inner_node, names, readings_of
+from tauledger.devices.family import GMIN, Device, Family, Refusal, Terminal, inner_node, names, readings_of
 from tauledger.devices.field_effect import Ends, cell_of, channel, figures, kept, mos_region, series
 from tauledger.devices.fitted import field_effect, isolated
 from tauledger.devices.gummel_poon import ZERO_CELSIUS
@@ -38,7 +38,6 @@ READINGS = (
 )
 TERMINALS = ("drain", "gate", "source", "junction", "case")
 JUNCTION = 3
-GMIN = 1e-12
 # k/q in V/K as ngspice has it (CODATA 2014): with the value of 2019 a hot diode differs by 3e-6.
 BOLTZMANN_OVER_CHARGE = 1.38064852e-23 / 1.6021766208e-19
 # Forward voltage that counts as conducting: four times V_T.

@@ -13,7 +13,7 @@ from msgspec import Struct
 
 from tauledger.circuit import Apply, Circuit, Element, Model, Number, fold
 from tauledger.devices.catalogue import FAMILIES, fitting
-from tauledger.devices.family import Family
+from tauledger.devices.family import GMIN, Family
 from tauledger.devices.polynomial import as_formula
 from tauledger.engine.formula import written
 from tauledger.errors import EngineError
@@ -21,7 +21,7 @@ from tauledger.errors import EngineError
 TITLE = "generated circuit"
 # Measured: gm is right to 1e-12 from reltol = 1e-5 on, and wrong by 1.7e-3 at ngspice's default of 1e-3.
 TIGHT = (("reltol", 1e-6), ("abstol", 1e-15), ("vntol", 1e-9))
-OPTIONS = {"gmin": 1e-12}
+OPTIONS = {"gmin": GMIN}
 ACCEPTED = frozenset({*OPTIONS, "rshunt"})
 WITH_BRANCH_CURRENT = ("V", "L", "E", "H")
 CONTROLLED = ("E", "F", "G", "H", "B")

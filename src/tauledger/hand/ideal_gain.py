@@ -21,9 +21,13 @@ from tauledger.hand.estimate import StageRow
 from tauledger.hand.feedback import FoundLoop
 from tauledger.network.bands import Bands
 
+# The feedback may leave from before a follower whose gain is within 5 % of 1.
 SAME_NODE = 0.05
 LONGEST_CHAIN = 4
+# A divider this near to 1 is left out of the text; the value counts it.
 NO_DIVIDER = 0.002
+# Rounding of a Norton current that is 1 V over one resistor.
+ROUNDING = 1e-9
 
 
 class IdealGain(Struct, frozen=True):
@@ -64,7 +68,7 @@ def _shunt(circuit: EquivalentCircuit, entry: str, feedback: Resistor) -> IdealG
     into = float(circuit.injected[circuit.row[entry]].real)
     if into:
         grounded = [r for r in _at(circuit, entry) if r.other(entry) == GROUND]
-        source = next((r for r in grounded if abs(1.0 / r.ohm - abs(into)) <= 1e-9 * abs(into)), None)
+        source = next((r for r in grounded if abs(1.0 / r.ohm - abs(into)) <= ROUNDING * abs(into)), None)
         sign = "-" if into > 0.0 else ""
         text = f"{sign}{feedback.name}" + (f"/{source.name}" if source is not None else "")
         return IdealGain(text, -feedback.ohm * into)

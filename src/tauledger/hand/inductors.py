@@ -17,12 +17,11 @@ from tauledger.errors import NetworkError
 from tauledger.hand.budget import resistance_across
 from tauledger.hand.equivalent import EquivalentCircuit, equivalent_circuit, joined
 from tauledger.hand.estimate import InductorRow
-from tauledger.hand.nodes import node_name, node_title
+from tauledger.hand.nodes import MOMENT_IN_PATH, node_name, node_title
 from tauledger.network.bands import Bands
 from tauledger.network.constants import OpenConstant, OpenConstants
 from tauledger.network.transformers import LEAKAGE, MAGNETISING
 
-MOMENT_IN_PATH = 0.02
 WORDS = {LEAKAGE: "leakage inductance", MAGNETISING: "magnetising inductance"}
 
 

@@ -24,7 +24,9 @@ from tauledger.hand.estimate import LowerRow
 from tauledger.hand.poles import MISSES, HandPole
 from tauledger.network.bands import Bands
 
+# Below this share the resistances at two capacitors make the pole together, and no one's R·C is it.
 OWNS = 0.6
+# Of poles a factor of 4 apart a quotient of coefficients misses by a few per cent; nearer ones pull each other.
 APART = 4.0
 
 

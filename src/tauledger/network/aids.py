@@ -24,11 +24,15 @@ HUGE_HENRY = 1e3
 HUGE_FARAD = 1.0
 # An aid whose pole lies four decades below the lowest other one turns the phase by 1e-3 a decade below that.
 UNSEEN = 1e-3
+# Where |H| is below this part of its largest, a difference counts against that part: what leaks past is no signal.
 SEEN_FROM = 1e-6
+# Both networks are compared from this far below the lowest root to this far above the highest.
 CHECKED_BEYOND = 10.0
 POINTS_PER_DECADE = 4
 SCANNED_PER_DECADE = 40
+# Roots this far below the amplifier's lowest are those of the aids.
 FAR = 1e3
+# The frequency that stands for the lowest root of a network that has none.
 NO_ROOTS_HZ = 1.0
 
 

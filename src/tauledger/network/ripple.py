@@ -14,15 +14,18 @@ from tauledger.network.assemble import Network
 from tauledger.network.lines import delay_of_waves
 from tauledger.network.solve import Complex, Real, response
 
+# Between two of them a sine has moved by a quarter of its amplitude at most, so that no dip is stepped over.
 PER_PERIOD = 24
 # Between two of so many frequencies a period, the phase turns by an eighth of a turn or so.
 PER_TURN = 8
 # What an even logarithmic sweep has beside it.
 SWEPT_PER_DECADE = 40
+# Frequencies of the even list around f_H, and of the closer look at one bottom of a ripple, ends counted.
 AROUND = 33
 CLOSER = 17
 # Beyond the frequency where |H| has fallen, so many times as far.
 BEYOND = 2.0
+# Some 800 periods; beyond, a note says that the ripple is followed no further.
 MOST_POINTS = 20_000
 
 
