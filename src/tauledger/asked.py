@@ -30,8 +30,7 @@ class Asked(Struct, frozen=True):
     swing_v: peak at the output in V for the large-signal figures, None for 1 V. outputs: further outputs, as typed.
     impedances: input and output impedance are wanted. unity: who sets unity gain and margin is wanted wherever there is
     one. peaking: who makes the peaking is wanted. loops: places at which the return ratio is wanted, as typed.
-    miller: Miller's factor over frequency, for formats that can show it. wants: figures that the
-    amplifier should have.
+    miller: Miller's factor over frequency, for formats that can show it. wants: figures that the amplifier should have.
     """
 
     at_hz: tuple[float, ...] = ()

@@ -58,7 +58,7 @@ def test_the_terminal_sets_it_beside_the_simulation_and_says_what_explains_it() 
         "bench.csv: 4 points, 8.00 kHz to 1.00 MHz; at 8.00 kHz it lies 0.50 dB above ngspice, which is taken out.",
         "Leaves ngspice above 321 kHz (off by 5° in phase); largest difference -1.84 dB at 1.00 MHz and",
         "12.0 pF from out to ground would explain it best: rms difference 1.09 dB → 0.03 dB over 4 points",
-        "rerun in ngspice with it: f_H 496.1 kHz, measured 497.2 kHz",
+        "run in ngspice with it: f_H 496.1 kHz, measured 497.2 kHz",
         "Hardly worse: 70.0 fF between b and out, 0.04 dB.",
     ):
         assert expected in text

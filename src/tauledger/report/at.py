@@ -5,8 +5,8 @@ from __future__ import annotations
 from tauledger.quantity import decibel_unit
 from tauledger.record import AtElement, AtFacts, PeakElement, PeakFacts, Review
 from tauledger.report.layout import Block, Prose, Row, Section, Table
-from tauledger.report.unity import FIRST_ORDER, degrees, signed
-from tauledger.report.wording import EDGE, NO_NUMBER, move, nominal, number, part_title
+from tauledger.report.unity import FIRST_ORDER, signed
+from tauledger.report.wording import EDGE, NO_NUMBER, degrees, move, number, part_title, value_of
 
 _MOST = 4
 
@@ -82,8 +82,3 @@ def peak_cells(one: PeakElement) -> tuple[str, str, str]:
     """Give an element with what 10 % less of it does to the peaking, to first order."""
     value = value_of(one.name, one.owner, one.value, one.unit)
     return part_title(one.name, one.owner), value, signed(-10.0 * one.peaking_db, " dB")
-
-
-def value_of(name: str, owner: str, value: float, unit: str) -> str:
-    """Write the value of an element: a card as on the schematic, what lies inside a device with three digits."""
-    return nominal(value, unit) if name == owner else number(value, unit, 3)

@@ -82,7 +82,7 @@ def explains_text(review: Review, curve: CurveFacts) -> str:
     text = f"{place_text(best)} would explain it best: rms difference {falls} {points}"
     if best.rerun:
         measured = next((figure.measured_hz for figure in curve.figures if figure.figure == "f_high"), None)
-        text += "; rerun in ngspice with it"
+        text += "; run in ngspice with it"
         if best.f_high_rerun_hz is not None:
             text += f": f_H {number(best.f_high_rerun_hz, 'Hz')}"
             text += "" if measured is None else f", measured {number(measured, 'Hz')}"

@@ -13,6 +13,7 @@ from tauledger.report.headline import KeyFigure, headline, key_figures
 from tauledger.report.questions import Answer, answers
 from tauledger.report.sections import circuit, evidence, feedback, ports, response, upper
 from tauledger.report.sentences import believed, drive_sentence
+from tauledger.report.wording import AGREEMENT_WARNS
 
 
 class Document(Struct, frozen=True):
@@ -59,7 +60,7 @@ def document(review: Review) -> Document:
         evidence.proof_section(review),
         evidence.trust_section(review),
     )
-    rejected = review.agreement is not None and review.agreement.max_relative_error > 1e-6
+    rejected = review.agreement is not None and review.agreement.max_relative_error > AGREEMENT_WARNS
     return Document(
         title=review.netlist.title or "(no title)",
         subtitle=_subtitle(review),

@@ -6,11 +6,14 @@ import math
 
 from msgspec import Struct
 
-from tauledger.record import EdgeFacts, NodeRow, PartRow, PoleFacts, Review
+from tauledger.quantity import decibel_unit
+from tauledger.record import NodeRow, PartRow, PoleFacts, Review, known_hz
 from tauledger.report.sentences import power_of_ten
+from tauledger.report.shown import unity_shown
 from tauledger.report.tables.upper import counting_nodes
-from tauledger.report.unity import decibels, degrees, margins
+from tauledger.report.unity import decibels, margins
 from tauledger.report.wording import (
+    degrees,
     move,
     number,
     part_title,
@@ -19,7 +22,6 @@ from tauledger.report.wording import (
 
 # A part with less than a fifth of the edge does not own it.
 OWNS = 0.2
-_DECIBEL = {"V/V": "dB", "A/A": "dB", "ohm": "dBΩ", "Ω": "dBΩ", "S": "dBS"}
 
 
 class KeyFigure(Struct, frozen=True):
@@ -33,8 +35,8 @@ class KeyFigure(Struct, frozen=True):
 def headline(review: Review) -> str:
     """Say gain and band, and which node limits them, in one or two sentences."""
     midband = review.midband
-    gain = f"{midband.gain_db:.1f} {_DECIBEL.get(midband.unit, 'dB')}"
-    low, high = _hz(review.f_low), _hz(review.f_high)
+    gain = f"{midband.gain_db:.1f} {decibel_unit(midband.unit)}"
+    low, high = known_hz(review.f_low), known_hz(review.f_high)
     if high is not None:
         start = "DC" if low is None and midband.from_hz == 0.0 else number(low, "Hz", 3)
         band = (
@@ -72,7 +74,7 @@ def key_figures(review: Review) -> tuple[KeyFigure, ...]:
     figures = [
         KeyFigure(
             "Gain at mid-band",
-            f"{midband.gain_db:.2f} {_DECIBEL.get(midband.unit, 'dB')}",
+            f"{midband.gain_db:.2f} {decibel_unit(midband.unit)}",
             f"{number(size, midband.unit)} at {at}",
         )
     ]
@@ -88,7 +90,7 @@ def key_figures(review: Review) -> tuple[KeyFigure, ...]:
         alone = "slowest node alone" if label.startswith("Upper") else "highest edge of a capacitor alone"
         by_hand = f"by hand {number(edge.hand_hz, 'Hz')}, {alone}" if edge.hand_hz is not None else "no hand estimate"
         differs = f" ({move(edge.difference)})" if edge.hand_hz is not None and edge.difference is not None else ""
-        figures.append(KeyFigure(label, number(_hz(edge), "Hz"), by_hand + differs))
+        figures.append(KeyFigure(label, number(known_hz(edge), "Hz"), by_hand + differs))
     if review.agreement is None:
         figures.append(KeyFigure("Checked against ngspice", "no", "numbers of the network as given"))
     else:
@@ -112,15 +114,10 @@ def limiting_node(review: Review) -> NodeRow | None:
     return max(nodes, key=lambda node: round(node.share.f_high or 0.0, 3), default=None)
 
 
-def unity_shown(review: Review) -> bool:
-    """Whether the report has a section on unity gain."""
-    return review.f_unity is not None and bool(review.f_unity.elements)
-
-
 def _unity_figure(review: Review) -> KeyFigure:
     facts = review.f_unity
     assert facts is not None
-    hz = facts.simulated_hz if facts.simulated_hz is not None else facts.exact_hz
+    hz = known_hz(facts)
     margin, gain_margin = margins(facts)
     beside = f"phase margin {degrees(margin)}"
     if gain_margin is not None:
@@ -138,7 +135,7 @@ def _largest_shares(review: Review) -> list[str]:
 
 def _pair_at_the_edge(review: Review) -> PoleFacts | None:
     """Give the complex pair that makes f_H: the visible pole nearest to it, with a Q above ½."""
-    high = _hz(review.f_high)
+    high = known_hz(review.f_high)
     if high is None:
         return None
     visible = [pole for pole in review.poles if not pole.cancelled and (pole.real_hz or pole.imag_hz)]
@@ -159,9 +156,3 @@ def _at(node: NodeRow) -> str:
     if what == node.title:
         return node.title
     return f"{node.name}, the {' and '.join(what.split(', '))}"
-
-
-def _hz(edge: EdgeFacts | None) -> float | None:
-    if edge is None:
-        return None
-    return edge.simulated_hz if edge.simulated_hz is not None else edge.exact_hz

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from tauledger.record import Help, Review
 from tauledger.report.layout import Block, Prose, Row, Section, Table
-from tauledger.report.wording import move, nominal, number, part_title
+from tauledger.report.wording import move, part_title, value_of
 
 _BIAS, _DEVICE = "§", "¶"
 
@@ -16,7 +16,7 @@ def what_would_help(review: Review) -> Section:
     rows: list[Row] = []
     for one in review.helps:
         title = part_title(one.name, one.owner) + _mark(one)
-        value = nominal(one.value, one.unit) if one.name == one.owner else number(one.value, one.unit, 3)
+        value = value_of(one.name, one.owner, one.value, one.unit)
         rows.append(Row((title, value, move(one.f_high), move(one.f_low), move(one.gain))))
         if one.gain_rerun is not None:
             rows.append(

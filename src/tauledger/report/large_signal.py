@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from tauledger.record import Review, SlewFacts
+from tauledger.record import Review, SlewFacts, known_hz
 from tauledger.report.layout import CAUTION, Block, Prose, Row, Section, Table
 from tauledger.report.wording import nominal, number
 
@@ -36,7 +36,7 @@ def first_limit(review: Review) -> str:
         f"{movers(slowest)}'s {number(slowest.current_a, 'A', 3)} into {number(slowest.capacitance_f, 'F', 3)}: "
         f"{at_node}; {nominal(facts.swing_v, 'V')} peak to {number(slowest.full_power_hz, 'Hz', 3)}"
     )
-    edge = None if review.f_high is None else review.f_high.simulated_hz or review.f_high.exact_hz
+    edge = known_hz(review.f_high)
     if edge is not None:
         part = slowest.full_power_hz / edge
         text += f", {part:.2g}·f_H" if part < 99.5 else f", {part:.0f}·f_H"

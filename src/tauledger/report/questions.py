@@ -6,18 +6,20 @@ import math
 
 from msgspec import Struct
 
-from tauledger.record import Help, PartRow, Review
-from tauledger.report.headline import limiting_node, line_at_the_edge, unity_shown
+from tauledger.record import Help, PartRow, Review, known_hz
+from tauledger.report.headline import limiting_node, line_at_the_edge
 from tauledger.report.lower import ends, in_parallel
 from tauledger.report.sentences import believed, plain, sentence
+from tauledger.report.shown import unity_shown
 from tauledger.report.tables.helps import change, kind
 from tauledger.report.tables.roots import stable_as_drawn
 from tauledger.report.tables.upper import places, term_seconds, whole_s
 from tauledger.report.tables.way import method_title
-from tauledger.report.unity import decibels, degrees, margins, signed
+from tauledger.report.unity import decibels, margins, signed
 from tauledger.report.wording import (
     EDGE,
     amount,
+    degrees,
     fraction,
     move,
     network_rejected,
@@ -75,7 +77,7 @@ def _is_it_stable(review: Review) -> str:
     facts = review.f_unity
     assert facts is not None
     margin, gain_margin = margins(facts)
-    hz = facts.simulated_hz if facts.simulated_hz is not None else facts.exact_hz
+    hz = known_hz(facts)
     # where |H| is 1 again farther up, the margin alone does not tell
     yes = "Yes: a" if margin is not None and not facts.further_hz else "A"
     said = f"{yes} phase margin of {degrees(margin)} is left at {number(hz, 'Hz')}"

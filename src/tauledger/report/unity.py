@@ -4,10 +4,11 @@ from __future__ import annotations
 
 from tauledger.record import Review, UnityElement, UnityFacts, UnityNode
 from tauledger.report.layout import Block, Prose, Row, Section, Table
-from tauledger.report.wording import NO_NUMBER, move, nominal, number, part_title
+from tauledger.report.wording import NO_NUMBER, coefficients, degrees, move, number, part_title, value_of
 
 _MOST_ELEMENTS, _MOST_NODES = 6, 4
 _BIAS, _DEVICE = "§", "¶"
+MEANS_NOTHING = 3.0
 FIRST_ORDER = "to first order, operating point held"
 MARKS = f"{_BIAS} takes part in the operating point, and moves it; {_DEVICE} inside a device"
 
@@ -24,7 +25,7 @@ def unity_gain(review: Review) -> Section:
 
 
 def who_sets(review: Review, *, verbose: bool = False) -> Section:
-    """Give what 10 % less of an element does to f_u and margin, the first two computed again, and 1 pF at each node."""
+    """Give what 10 % less of an element does to f_u and margin, the first two recomputed, and 1 pF at each node."""
     facts = review.f_unity
     if facts is None or not facts.elements:
         return Section(())
@@ -57,14 +58,25 @@ def figures(facts: UnityFacts) -> tuple[tuple[str, str, str, str], ...]:
         at = (number(facts.gain_margin_at_hz, "Hz"), number(facts.gain_margin_exact_at_hz, "Hz"))
         rows.append(("  -180° reached at", *at, ""))
     product = (number(facts.gain_bandwidth_hz, "Hz"), number(facts.gain_bandwidth_exact_hz, "Hz"))
-    rows.append(("gain · f_H", *product, ""))
+    if _of_one_pole(facts):
+        rows.append(("gain · f_H", *product, ""))
     return tuple(rows)
+
+
+def _of_one_pole(facts: UnityFacts) -> bool:
+    """Whether gain · f_H is anywhere near f_u; with several poles or zeros in between it says nothing of it."""
+    for product, hz in ((facts.gain_bandwidth_hz, facts.simulated_hz), (facts.gain_bandwidth_exact_hz, facts.exact_hz)):
+        if product is not None and hz is not None:
+            return 1.0 / MEANS_NOTHING < product / hz < MEANS_NOTHING
+    return True
 
 
 def remarks(facts: UnityFacts) -> tuple[str, ...]:
     """Say what the figures do not: how the hand figure is meant, no gain margin, instability, further crossings."""
     said = []
-    if facts.hand_hz is not None:
+    if facts.hand_hz is not None and facts.hand_formula:
+        said.append(f"f_u by hand: {coefficients(facts.hand_formula)}.")
+    elif facts.hand_hz is not None:
         said.append("f_u by hand: mid-band gain times f_H by hand, as one pole alone has it.")
     margin, _ = margins(facts)
     if margin is not None and margin <= 0.0:
@@ -87,7 +99,7 @@ def margins(facts: UnityFacts) -> tuple[float | None, float | None]:
 def element_cells(one: UnityElement) -> tuple[str, str, str, str, str]:
     """Give an element with its value and what 10 % less of it does to f_u, margin and gain margin, to first order."""
     mark = "" if one.free else _BIAS if one.moves_bias else _DEVICE
-    value = nominal(one.value, one.unit) if one.name == one.owner else number(one.value, one.unit, 3)
+    value = value_of(one.name, one.owner, one.value, one.unit)
     gain_margin = NO_NUMBER if one.gain_margin_db is None else signed(-10.0 * one.gain_margin_db, " dB")
     return (
         part_title(one.name, one.owner) + mark,
@@ -99,12 +111,12 @@ def element_cells(one: UnityElement) -> tuple[str, str, str, str, str]:
 
 
 def again_cells(one: UnityElement, facts: UnityFacts) -> tuple[str, str, str, str]:
-    """Give the same element computed again: no value, f_u, margin, no gain margin."""
+    """Give the same element recomputed: no value, f_u, margin, no gain margin."""
     return "", _hz_move(one.f_unity_rerun_hz, facts), _margin_move(one.phase_margin_rerun_deg, facts), ""
 
 
 def node_cells(node: UnityNode, facts: UnityFacts) -> tuple[str, str, str]:
-    """Give a node with what 1 pF from it to ground does to f_u and margin, computed again."""
+    """Give a node with what 1 pF from it to ground does to f_u and margin, recomputed."""
     return node.title, _hz_move(node.one_picofarad_hz, facts), _margin_move(node.one_picofarad_margin_deg, facts)
 
 
@@ -115,11 +127,6 @@ def _hz_move(hz: float | None, facts: UnityFacts) -> str:
 def _margin_move(deg: float | None, facts: UnityFacts) -> str:
     exact = facts.phase_margin_exact_deg
     return NO_NUMBER if deg is None or exact is None else signed(deg - exact, "°")
-
-
-def degrees(deg: float | None) -> str:
-    """Write an angle to a tenth of a degree, a dash where there is none."""
-    return NO_NUMBER if deg is None else f"{deg:.1f}°"
 
 
 def decibels(db: float | None) -> str:

@@ -29,6 +29,8 @@ SOLVED = "†"
 LOOP = "‡"
 NO_NUMBER = "–"
 _NOTHING = 5e-5
+# Less than what is printed of an angle.
+NOTHING_DEG = 0.05
 
 
 def number(value: float | None, unit: str, digits: int = 4) -> str:
@@ -55,7 +57,12 @@ def amount(part: PartRow) -> str:
     if part.kind == "block":
         return NO_NUMBER
     unit = part_unit(part.kind)
-    return nominal(part.value, unit) if part.owner == part.name or part.kind == "line" else number(part.value, unit, 3)
+    return nominal(part.value, unit) if part.kind == "line" else value_of(part.name, part.owner, part.value, unit)
+
+
+def value_of(name: str, owner: str, value: float, unit: str) -> str:
+    """Write the value of an element: a card as on the schematic, what lies inside a device with three digits."""
+    return nominal(value, unit) if name == owner else number(value, unit, 3)
 
 
 def part_unit(kind: str) -> str:
@@ -68,6 +75,13 @@ def move(fraction: float | None, digits: int = 2) -> str:
     if fraction is None or not math.isfinite(fraction):
         return NO_NUMBER
     return "0.00 %" if abs(fraction) < _NOTHING else percent(fraction, digits)
+
+
+def degrees(value: float | None) -> str:
+    """Write an angle with one decimal, "23.5°"; no minus before a zero, a dash where there is none."""
+    if value is None:
+        return NO_NUMBER
+    return f"{value if abs(value) >= NOTHING_DEG else 0.0:.1f}°"
 
 
 def fraction(value: float | None) -> str:

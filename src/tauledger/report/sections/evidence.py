@@ -29,9 +29,9 @@ def lines_section(review: Review) -> Section:
 
 
 def proof_section(review: Review) -> Section:
-    """Give what was computed again."""
+    """Give what was recomputed."""
     grids = [grid for grid in (way.reruns(review), setting.sums(review)) if grid.rows]
-    return Section("proof", "What was computed again as proof", tuple(grids))
+    return Section("proof", "What was recomputed as proof", tuple(grids))
 
 
 def trust_section(review: Review) -> Section:

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from tauledger.record import Review
 from tauledger.report.blocks import Block, Folded, Picture, Prose, Section
+from tauledger.report.large_signal import first_limit
 from tauledger.report.sentences import sentence
 from tauledger.report.tables import large_signal, setting
 from tauledger.report.tables.working import Lines
@@ -24,7 +25,7 @@ def large_signal_section(review: Review) -> Section:
     facts = review.large_signal
     if facts is None:
         return Section("large", "", ())
-    blocks = (Prose(sentence(large_signal.first_limit(review))), large_signal.large_signal(facts))
+    blocks = (Prose(sentence(first_limit(review))), large_signal.large_signal(facts))
     return Section("large", "Large signal", blocks)
 
 

@@ -5,7 +5,7 @@ from __future__ import annotations
 from tauledger.record import Review
 from tauledger.report.blocks import Block, Picture, Prose, Section
 from tauledger.report.curve import differs_text, explains_text, level_text
-from tauledger.report.headline import unity_shown
+from tauledger.report.shown import unity_shown
 from tauledger.report.tables import at as frequencies
 from tauledger.report.tables import curve as measured
 

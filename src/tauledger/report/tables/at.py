@@ -32,7 +32,7 @@ def peak(one: PeakFacts) -> Grid:
 
 
 def peak_elements(one: PeakFacts) -> Grid:
-    """Give what 10 % less of every element does to the peaking, the first two computed again."""
+    """Give what 10 % less of every element does to the peaking, the first two recomputed."""
     rows = []
     for element in one.elements:
         rows.append(GridRow(peak_cells(element), part=element.name))

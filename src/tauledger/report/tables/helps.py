@@ -6,7 +6,7 @@ from collections.abc import Collection
 
 from tauledger.record import Help, Review
 from tauledger.report.tables.grid import Grid, GridRow, columns, said
-from tauledger.report.wording import move, nominal, number, part_title
+from tauledger.report.wording import move, part_title, value_of
 
 MARKS = {"bias": " §", "device": " ¶", "free": ""}
 
@@ -33,7 +33,7 @@ def what_would_help(review: Review) -> Grid:
     rows = []
     for one in review.helps:
         title = part_title(one.name, one.owner) + MARKS[kind(one)]
-        value = nominal(one.value, one.unit) if one.name == one.owner else number(one.value, one.unit, 3)
+        value = value_of(one.name, one.owner, one.value, one.unit)
         first = (title, value, move(one.f_high), move(one.f_low), move(one.gain))
         rows.append(GridRow(first, part=one.name))
         if one.gain_rerun is not None:
@@ -46,5 +46,5 @@ def what_would_help(review: Review) -> Grid:
 
 
 def change(hz: float | None, before: float | None) -> float | None:
-    """Give a frequency computed again as a fraction of what it was, less one."""
+    """Give a recomputed frequency as a fraction of what it was, less one."""
     return hz / before - 1.0 if hz is not None and before else None

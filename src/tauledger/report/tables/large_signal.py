@@ -4,10 +4,8 @@ from __future__ import annotations
 
 from tauledger.quantity import engineering
 from tauledger.record import LargeSignal
-from tauledger.report.large_signal import cells, first_limit
+from tauledger.report.large_signal import cells
 from tauledger.report.tables.grid import Grid, GridRow, columns
-
-__all__ = ["first_limit", "large_signal"]
 
 
 def large_signal(facts: LargeSignal) -> Grid:

@@ -6,17 +6,9 @@ import math
 
 from tauledger.record import PhaseBudget, PhaseRow, Review, UnityStep
 from tauledger.report.tables.grid import Grid, GridRow, columns
-from tauledger.report.wording import NO_NUMBER, coefficients, move, number, retitled
+from tauledger.report.wording import NOTHING_DEG, coefficients, degrees, move, number, retitled
 
-NOTHING_DEG = 0.05
 Cells = tuple[str, ...]
-
-
-def angle(value: float | None) -> str:
-    """Write an angle in degrees with one decimal: "23.5°"."""
-    if value is None:
-        return NO_NUMBER
-    return f"{value if abs(value) >= NOTHING_DEG else 0.0:.1f}°"
 
 
 def phase_budget(budget: PhaseBudget) -> Grid:
@@ -38,10 +30,10 @@ def budget_cells(budget: PhaseBudget) -> tuple[Cells, ...]:
     rows: list[Cells] = [_cells(row) for row in budget.rows]
     if budget.others:
         others = "1 other" if budget.others == 1 else f"{budget.others} others together"
-        rows.append((others, "", angle(budget.others_deg), "", "", ""))
+        rows.append((others, "", degrees(budget.others_deg), "", "", ""))
     if abs(budget.rest_deg) >= NOTHING_DEG:
-        rows.append(("delay", "", angle(budget.rest_deg), "", "", ""))
-    rows.append(("left for the margin", "", angle(budget.margin_deg), "", "", ""))
+        rows.append(("delay", "", degrees(budget.rest_deg), "", "", ""))
+    rows.append(("left for the margin", "", degrees(budget.margin_deg), "", "", ""))
     return tuple(rows)
 
 
@@ -60,7 +52,7 @@ def step_cells(step: UnityStep) -> Cells:
         by_paper, exact = number(step.hand, "Hz", 4), number(step.exact, "Hz", 4)
         how = f"= {step.formula}" if step.values else "with the poles and zeros above"
         return (f"{step.figure} {how}", by_paper, exact, move(step.hand / step.exact - 1.0))
-    return (step.figure, angle(step.hand), angle(step.exact), f"{step.hand - step.exact:+.1f}°")
+    return (step.figure, degrees(step.hand), degrees(step.exact), f"{step.hand - step.exact:+.1f}°")
 
 
 def step_reasons(budget: PhaseBudget) -> tuple[tuple[UnityStep, str], ...]:
@@ -82,10 +74,10 @@ def _cells(row: PhaseRow) -> Cells:
     return (
         _name(row),
         number(math.hypot(row.real_hz, row.imag_hz), "Hz", 4),
-        angle(row.used_deg),
+        degrees(row.used_deg),
         "" if row.hand_hz is None else number(abs(row.hand_hz), "Hz", 4),
         "" if row.difference is None else move(row.difference),
-        "" if row.hand_deg is None else angle(row.hand_deg),
+        "" if row.hand_deg is None else degrees(row.hand_deg),
     )
 
 

@@ -22,7 +22,7 @@ def unity_gain(facts: UnityFacts) -> Grid:
 
 
 def who_sets(facts: UnityFacts) -> Grid:
-    """Give what 10 % less of every element does to f_u and both margins, the first two computed again."""
+    """Give what 10 % less of every element does to f_u and both margins, the first two recomputed."""
     rows = []
     for one in facts.elements:
         title, *cells = element_cells(one)
@@ -36,6 +36,6 @@ def who_sets(facts: UnityFacts) -> Grid:
 
 
 def at_nodes(facts: UnityFacts) -> Grid:
-    """Give what 1 pF from a node to ground does to f_u and margin, each computed again."""
+    """Give what 1 pF from a node to ground does to f_u and margin, each recomputed."""
     rows = tuple(GridRow(node_cells(node, facts), part=node.node) for node in facts.nodes)
-    return Grid("1 pF to ground, computed again", columns("Node", "f_u", "phase margin"), rows)
+    return Grid("1 pF to ground, recomputed", columns("Node", "f_u", "phase margin"), rows)

@@ -5,8 +5,7 @@ from __future__ import annotations
 from tauledger.quantity import decibel_unit
 from tauledger.record import Remedy, Review, WantChange, WantFacts
 from tauledger.report.tables.grid import Grid, GridRow, columns
-from tauledger.report.tables.phase import angle
-from tauledger.report.wording import NO_NUMBER, nominal, number, part_title
+from tauledger.report.wording import NO_NUMBER, degrees, nominal, number, part_title
 
 NAMES = {"margin": "phase margin", "gain_margin": "gain margin", "f_u": "f_u", "f_h": "f_H", "f_l": "f_L"}
 BIAS = "§"
@@ -27,7 +26,7 @@ def figure(want: WantFacts, value: float | None) -> str:
     if value is None:
         return NO_NUMBER
     if want.unit == "°":
-        return angle(value)
+        return degrees(value)
     return f"{value:.1f} dB" if want.unit == "dB" else number(value, want.unit, 4)
 
 
@@ -60,7 +59,7 @@ def cells(want: WantFacts, one: Remedy, review: Review) -> Cells:
     value = next((change for change in one.changes if not _put_in(change)), None)
     beside = {
         "f_u": number(one.f_unity_hz, "Hz", 4),
-        "margin": angle(one.phase_margin_deg),
+        "margin": degrees(one.phase_margin_deg),
         "gain": f"{one.gain_db:.2f} {decibel_unit(review.midband.unit)}",
     }
     others = (beside[head] for head in BESIDE[want.quantity])

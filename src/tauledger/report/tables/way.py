@@ -1,4 +1,4 @@
-"""Estimates: the way from the lowest node to the simulation, the methods beside it, and what was computed again."""
+"""Estimates: the way from the lowest node to the simulation, the methods beside it, and what was recomputed."""
 
 from __future__ import annotations
 
@@ -6,7 +6,7 @@ import math
 
 from msgspec import Struct
 
-from tauledger.record import PartRow, Review
+from tauledger.record import PartRow, Review, known_hz
 from tauledger.report.tables.grid import Column, Grid, GridRow, columns
 from tauledger.report.wording import EDGE, NO_NUMBER, coefficients, move, number, part_titles
 
@@ -72,7 +72,7 @@ def way(review: Review, edge: str) -> tuple[Told, ...]:
         else:
             continue
         last = hz
-    end = facts.simulated_hz if facts.simulated_hz is not None else facts.exact_hz
+    end = known_hz(facts)
     if end is not None:
         name = "simulated" if facts.simulated_hz is not None else "exact"
         told.append(Told(name, end, end / last - 1.0, "what is left of the smaller steps"))
