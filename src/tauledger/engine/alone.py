@@ -215,6 +215,7 @@ def samples(
     answers: for each driven terminal, then each forced current, the currents through the holders (from the terminal
     into ground) and the inner nodes' voltages, (n_holders + n_inner, n_freq); an inner node that does not exist is NaN.
     shunt: what stands from every node to ground, S.
+    Raises EngineError where an answer is not finite.
     """
     isolation, n = instance.isolation, len(instance.terminals)
     driven = np.stack(answers, axis=-1).transpose(1, 0, 2)
