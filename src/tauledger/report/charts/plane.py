@@ -56,7 +56,7 @@ def plane_chart(review: Review) -> str:
                     (-radius, 0.0),
                     (0, -7),
                     textcoords="offset points",
-                    ha="center",
+                    ha="center" if radius > 1.0 else "right",
                     va="top",
                     fontsize=7.5,
                     color=light("muted"),
@@ -97,4 +97,12 @@ def _marks(axes: Axes, placed: list[tuple[Root, float, float]], *, letter: float
                 color=light("exact" if root.is_pole else "hand"),
                 linestyle="none",
             )
-        axes.annotate(name, (x, y), (0, 8 + LINE * level), textcoords="offset points", ha="center", va="bottom")
+        sideways = 2 if x == 0.0 else 0
+        axes.annotate(
+            name,
+            (x, y),
+            (sideways, 8 + LINE * level),
+            textcoords="offset points",
+            ha="left" if sideways else "center",
+            va="bottom",
+        )

@@ -16,6 +16,7 @@ FAR = 50.0
 MOST = 24
 MAKES_THE_EDGE = 0.5
 EFFECT_SHOWN = 0.02
+NEXT = 1.5
 
 
 class Root(Struct, frozen=True):
@@ -144,8 +145,11 @@ def _by_hand(root: PoleFacts | ZeroFacts) -> str:
 
 def _does(root: Root, review: Review) -> str:
     effect = root.facts.effect if isinstance(root.facts, PoleFacts) else None
+    low, high = band_hz(review)
+    if effect is None and root.is_pole and root.imag_hz and review.f_high and high / NEXT < root.size_hz < high * NEXT:
+        # its like in the upper network alone lies too far off to tell an effect, and no other pole is at the edge
+        return "makes f_H"
     if effect is None or abs(effect) < EFFECT_SHOWN:
         return ""
-    low, high = band_hz(review)
     edge = "f_L" if review.f_low and root.size_hz**2 < low * high else "f_H"
     return f"makes {edge}" if abs(effect) > MAKES_THE_EDGE else f"without it {edge} {move(effect)}"
