@@ -9,7 +9,7 @@ from msgspec.structs import replace
 
 from strategies import networks
 from tauledger.circuit import Port
-from tauledger.devices.parts import capacitance, resistance, voltage_source
+from tauledger.devices.parts import capacitance, current_source, resistance, transconductance, voltage_source
 from tauledger.errors import NetworkError
 from tauledger.network.assemble import Network
 from tauledger.network.bands import classify, find_midband
@@ -20,11 +20,13 @@ from tauledger.network.identities import (
     check,
     open_identities,
     response_identities,
+    rounding,
     share_identities,
     short_identities,
 )
 from tauledger.network.lower import short_constants
 from tauledger.network.shares import find_shares
+from tauledger.network.solve import on_axis, solve
 from tauledger.network.spectrum import pole_frequencies, zero_frequencies
 
 few = settings(max_examples=25, deadline=None, derandomize=True)
@@ -96,3 +98,20 @@ def test_what_rounding_leaves_of_held_capacitors_is_no_failure() -> None:
     check(open_identities(replace(constants, sum_s=-3.2e-28, b1_s=-3.2e-28)))
     with pytest.raises(NetworkError, match=r"sum of time constants = -sum of 1/p"):
         check(open_identities(replace(constants, sum_s=1e-15, b1_s=1e-15)))
+
+
+def test_rounding_is_taken_for_as_large_as_what_cancels_in_the_output() -> None:
+    """1 A into R: |λ||Y||x| is the output itself; the difference of two equal gains G leaves 1 of 2·G."""
+    ohm, gain = 7.0, 1e6
+    alone = Network.from_parts([current_source("I", "0", "a", 1.0), resistance("R", "a", "0", ohm)], output=Port("a"))
+    eps = float(np.finfo(float).eps)
+    assert rounding(alone, solve(alone, on_axis(1.0))) == pytest.approx(eps * ohm, rel=1e-12, abs=0.0)
+    parts = [
+        current_source("I", "0", "a", 1.0),
+        resistance("RA", "a", "0", 1.0),
+        transconductance("GP", ("0", "out"), ("a", "0"), gain + 1.0),
+        transconductance("GM", ("out", "0"), ("a", "0"), gain),
+        resistance("RO", "out", "0", 1.0),
+    ]
+    cancelling = Network.from_parts(parts, output=Port("out"))
+    assert rounding(cancelling, solve(cancelling, on_axis(1.0))) > gain * eps

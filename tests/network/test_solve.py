@@ -9,7 +9,16 @@ from hypothesis import given, settings
 import amplifiers
 from strategies import networks
 from tauledger.circuit import Port
-from tauledger.devices.parts import Part, capacitance, current_source, inductance, line, resistance, voltage_source
+from tauledger.devices.parts import (
+    Part,
+    capacitance,
+    current_source,
+    inductance,
+    line,
+    resistance,
+    transconductance,
+    voltage_source,
+)
 from tauledger.errors import NetworkError
 from tauledger.network import solve as module
 from tauledger.network.assemble import Network, incidence
@@ -147,3 +156,26 @@ def test_where_a_line_leaves_no_full_number_the_slope_is_without_end() -> None:
     slope = log_slope(network, solve(network, on_axis(np.array([1e12, 5e13, 6e13, 1e15])))).real
     assert slope[:2] == pytest.approx(-np.sqrt(np.pi * np.array([1e12, 5e13]) * 2.84e-9) / 2.0, rel=0.02)
     assert np.all(slope[2:] == -np.inf)
+
+
+BESIDE = 1e12
+
+
+@pytest.mark.parametrize("limit", [DENSE_LIMIT, 0])
+def test_a_row_of_huge_entries_takes_no_digits_from_the_output(limit: int, monkeypatch: pytest.MonkeyPatch) -> None:
+    """a + K·b = K and a + b = 2: pivots chosen by size alone leave 4 digits of a (Golub and Van Loan, section 3.4)."""
+    monkeypatch.setattr(module, "DENSE_LIMIT", limit)
+    parts = [
+        resistance("RA", "a", "0", 1.0),
+        transconductance("GA", ("a", "0"), ("b", "0"), BESIDE),
+        resistance("RB", "b", "0", 1.0),
+        transconductance("GB", ("b", "0"), ("a", "0"), 1.0),
+        current_source("IA", "0", "a", BESIDE),
+        current_source("IB", "0", "b", 2.0),
+    ]
+    network = Network.from_parts(parts, output=Port("a"))
+    exact = 2.0 - (BESIDE - 2.0) / (BESIDE - 1.0)
+    at = solve(network, on_axis(1.0))
+    assert at.response[0] == pytest.approx(exact, rel=1e-14)
+    assert at.adjoint[0] @ network.drive == pytest.approx(exact, rel=1e-3)
+    assert response(network, np.array([1.0]))[0] == pytest.approx(exact, rel=1e-14)
