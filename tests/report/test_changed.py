@@ -18,7 +18,7 @@ def test_without_settings_the_page_says_nothing_of_them() -> None:
     assert not any(line.startswith("SET ") for line in render(ECHO_PREAMP, color=False, unicode=True).splitlines())
 
 
-def test_figures_that_move_stand_before_and_after_with_their_change() -> None:
+def test_figures_that_move_stand_before_and_after_and_those_that_read_the_same_below() -> None:
     lines = page(
         MovedFigure("gain", "dB", 39.63, 40.7),
         MovedFigure("f_H simulated", "Hz", 733.5e3, 631.5e3),
@@ -26,6 +26,7 @@ def test_figures_that_move_stand_before_and_after_with_their_change() -> None:
         MovedFigure("f_L simulated", "Hz", None, 12.0),
         MovedFigure("phase margin exact", "deg", 62.5, 58.0),
         MovedFigure("f_H peak", "dB", 0.0, 0.0),
+        MovedFigure("plateau to", "Hz", 243.61e3, 243.62e3),
     )
     at = lines.index("SET R3 = 4700, nsmall.bf = 100")
     assert [" ".join(line.split()) for line in lines[at + 1 : at + 8]] == [
@@ -35,7 +36,7 @@ def test_figures_that_move_stand_before_and_after_with_their_change() -> None:
         "f_H phase shift -47.3° -47.0° +0.3°",
         "f_L simulated – 12.00 Hz –",
         "phase margin exact 62.5° 58.0° -4.5°",
-        "unchanged: f_H peak",
+        "unchanged: f_H peak, plateau to",
     ]
 
 

@@ -60,10 +60,11 @@ def read_past(review: Review) -> Section:
 
 
 def same(figure: MovedFigure) -> bool:
-    """Whether a figure stands still."""
+    """Whether a figure stands still, or reads the same."""
     if figure.before is None or figure.after is None:
         return figure.before is figure.after
-    return abs(figure.after - figure.before) <= _STANDS_STILL * max(abs(figure.before), abs(figure.after))
+    still = abs(figure.after - figure.before) <= _STANDS_STILL * max(abs(figure.before), abs(figure.after))
+    return still or shown(figure, figure.before) == shown(figure, figure.after)
 
 
 def shown(figure: MovedFigure, value: float | None) -> str:

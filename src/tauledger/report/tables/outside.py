@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from tauledger.record import MovedFigure, Review
+from tauledger.record import Review
 from tauledger.report.changed import added_text, by, same, set_text, shown, so
 from tauledger.report.paper import AGREES, figure_title
 from tauledger.report.tables.grid import Grid, GridRow, columns
@@ -45,12 +45,8 @@ def set_values(review: Review) -> Grid:
     rows = tuple(
         GridRow((figure.figure, shown(figure, figure.before), shown(figure, figure.after), by(figure)))
         for figure in review.moved
-        if not _reads_the_same(figure)
+        if not same(figure)
     )
-    still = ", ".join(figure.figure for figure in review.moved if _reads_the_same(figure))
+    still = ", ".join(figure.figure for figure in review.moved if same(figure))
     heads = columns("Figure", "as in the netlist", so(review), "change")
     return Grid(". ".join(told), heads, rows, f"Unchanged: {still}." if still else "")
-
-
-def _reads_the_same(figure: MovedFigure) -> bool:
-    return same(figure) or shown(figure, figure.before) == shown(figure, figure.after)
