@@ -9,8 +9,10 @@ from msgspec.structs import replace
 
 from report.literal import ECHO_PREAMP
 from tauledger.record import CapacitanceTerm, ResistanceTerm, Review, SourceLine, WorkingLine
+from tauledger.report.blocks import Picture
 from tauledger.report.drawing.stage import drawn_stages
 from tauledger.report.questions import answers
+from tauledger.report.sections.circuit import stages_section
 from tauledger.report.tables import setting, upper
 from tauledger.report.wording import coefficients
 
@@ -97,3 +99,22 @@ def test_the_lower_edge_has_an_answer() -> None:
 )
 def test_a_coefficient_is_no_node(plain: str, set_as: str) -> None:
     assert coefficients(plain) == set_as
+
+
+def test_a_place_without_capacitance_has_no_row() -> None:
+    review = inside_and_out()
+    base = review.nodes[0]
+    assert base.working is not None
+    empty = line("inside X1", 0.0, ())
+    padded = replace(base, working=replace(base.working, lines=(*base.working.lines, empty, empty)))
+    assert upper.budget(replace(review, nodes=(padded, *review.nodes[1:]))).rows == upper.budget(review).rows
+
+
+def test_no_stage_is_drawn_without_the_node_that_takes_most() -> None:
+    """All stages passive: the drawing takes them together and would show the last node alone."""
+    assert any(isinstance(block, Picture) for block in stages_section(ECHO_PREAMP).blocks)
+    passive = tuple(replace(stage, owner="", gain_hand=1.0, gain_exact=1.0) for stage in ECHO_PREAMP.stages)
+    assert passive[-1].node != upper.counting_nodes(ECHO_PREAMP)[0].name
+    blocks = stages_section(replace(ECHO_PREAMP, stages=passive)).blocks
+    assert not any(isinstance(block, Picture) for block in blocks)
+    assert upper.equivalent(ECHO_PREAMP) in blocks
