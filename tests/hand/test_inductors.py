@@ -157,7 +157,7 @@ def test_a_coil_that_peaks_counts_l_over_r_and_the_choke_r_over_l() -> None:
     assert explained.hand is not None
     (coil,) = explained.hand.inductors
     assert coil.in_path
-    assert coil.time_constant_s == pytest.approx(coil.henry / coil.resistance.ohm)
+    assert coil.time_constant_s == pytest.approx(coil.henry / coil.resistance.ohm, rel=1e-9, abs=0)
     numbers, fed = choke_fed()
     row = lower(fed)["LC"]
     assert numbers.edges.f_low is not None

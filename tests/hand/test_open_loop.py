@@ -57,7 +57,7 @@ def test_with_one_slow_node_the_sum_is_the_edge_of_t(c_in: float, c_out: float, 
     total = 1.0 / (2.0 * np.pi * hand.edge_hz)
     assert sum(node.seconds for node in hand.nodes) == pytest.approx(total, rel=0.02)
     for node in hand.nodes:
-        assert node.ohm * node.farad == pytest.approx(node.seconds, rel=1e-9)
+        assert node.ohm * node.farad == pytest.approx(node.seconds, rel=1e-9, abs=0)
 
 
 def test_of_two_slow_nodes_the_sum_stays_below_the_edge() -> None:
