@@ -12,6 +12,7 @@ from compensated import TwoStages, network_of
 from tauledger.asked import Asked
 from tauledger.circuit import Port
 from tauledger.devices.parts import (
+    Part,
     capacitance,
     delayed_transconductance,
     resistance,
@@ -22,6 +23,7 @@ from tauledger.engine.client import Engine
 from tauledger.network.assemble import Network
 from tauledger.pipeline import review, review_network
 from tauledger.record import PhaseBudget, PhaseRow, Review
+from tauledger.report.unity import figures
 
 FIXTURES = Path(__file__).parents[2] / "fixtures"
 
@@ -306,3 +308,33 @@ def test_what_a_delay_takes_beside_its_all_pass_is_a_row_of_its_own() -> None:
     assert budget.margin_deg == pytest.approx(plain.margin_deg - math.degrees(turn), abs=1e-6)
     assert budget.rest_deg == pytest.approx(math.degrees(turn - 2.0 * math.atan(turn / 2.0)), abs=1e-6)
     assert total(budget) == pytest.approx(180.0 - budget.margin_deg, abs=1e-9)
+
+
+def test_the_section_on_unity_gain_shows_what_the_formulas_give(engine: Engine, tmp_path: Path) -> None:
+    found = of_text(BUFFER, engine, tmp_path)
+    budget, facts = budget_of(found), found.f_unity
+    assert facts is not None
+    assert facts.hand_hz == [step.hand for step in budget.by_hand if step.figure == "f_u"][-1]
+    assert facts.hand_formula.startswith("gm1·R1·A2/(2π·b1)")
+    assert facts.difference == pytest.approx(facts.hand_hz / (facts.simulated_hz or math.nan) - 1.0)
+
+
+def test_gain_times_f_high_far_from_unity_gain_is_no_figure() -> None:
+    """Three poles far below f_u: the product of one pole alone is many times f_u."""
+    parts: list[Part] = [voltage_source("V1", "in", "0", 1.0)]
+    before = "in"
+    for k, (ohm, farad) in enumerate([(100e3, 16e-9), (10e3, 1.6e-9), (10e3, 1.6e-9)]):
+        parts += [
+            transconductance(f"G{k}", ("0", f"n{k}"), (before, "0"), 20.0 / ohm),
+            resistance(f"R{k}", f"n{k}", "0", ohm),
+            capacitance(f"C{k}", f"n{k}", "0", farad),
+        ]
+        before = f"n{k}"
+    found = review_network(Network.from_parts(parts, output=Port("n2")))
+    facts = found.f_unity
+    assert facts is not None
+    assert facts.exact_hz is not None
+    assert facts.gain_bandwidth_exact_hz is not None
+    assert facts.gain_bandwidth_exact_hz > 3.0 * facts.exact_hz
+    assert facts.hand_hz is None
+    assert "gain · f_H" not in [cells[0] for cells in figures(facts)]

@@ -172,12 +172,18 @@ def test_nodes_are_called_as_the_rest_of_the_review_calls_them(servo: Review) ->
     assert all(titles[one.node] == one.title for one in facts_of(servo).nodes)
 
 
-def test_the_hand_figure_is_the_gain_times_the_edge_by_hand(servo: Review) -> None:
+def test_the_hand_figure_is_that_of_its_formulas_else_the_gain_times_the_edge_by_hand(
+    servo: Review, engine: Engine
+) -> None:
     facts = facts_of(servo)
-    assert servo.f_high is not None
-    assert servo.f_high.hand_hz is not None
-    gain = abs(complex(servo.midband.gain_real, servo.midband.gain_imag))
-    assert facts.hand_hz == pytest.approx(gain * servo.f_high.hand_hz)
+    assert servo.phase_budget is not None
+    assert facts.hand_hz == servo.phase_budget.by_hand[1].hand
+    quiet = review(FIXTURES / "series_shunt.cir", engine=engine)
+    plain = facts_of(quiet)
+    assert quiet.f_high is not None
+    assert quiet.f_high.hand_hz is not None
+    gain = abs(complex(quiet.midband.gain_real, quiet.midband.gain_imag))
+    assert (plain.hand_hz, plain.hand_formula) == (pytest.approx(gain * quiet.f_high.hand_hz), "")
     assert facts.difference == pytest.approx((facts.hand_hz or 0.0) / (facts.simulated_hz or 1.0) - 1.0)
 
 

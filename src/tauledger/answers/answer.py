@@ -37,7 +37,12 @@ def answer(found: Review, subject: Subject, asked: Asked) -> Review:
     if found.f_unity is not None and found.f_unity.elements:
         from tauledger.answers.phase_budget import phase_budget
 
-        found = replace(found, phase_budget=phase_budget(found, subject))
+        budget = phase_budget(found, subject)
+        found = replace(found, phase_budget=budget)
+        if budget is not None and found.f_unity is not None:
+            from tauledger.answers.unity import with_formula
+
+            found = replace(found, f_unity=with_formula(found.f_unity, budget.by_hand))
     if asked.at_hz:
         from tauledger.answers.at import at_facts
 

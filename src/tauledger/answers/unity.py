@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+
 from msgspec.structs import replace
 
 from tauledger.answers.answer import Subject
@@ -10,10 +12,12 @@ from tauledger.errors import InputError
 from tauledger.network.midband import MidBand
 from tauledger.network.unity import Unity, find_unity, is_ratio
 from tauledger.numbers import Numbers
-from tauledger.record import Review, UnityFacts
+from tauledger.record import Review, UnityFacts, UnityStep
 
 # From here on an amplifier is meant to be closed around: at less, unity gain is what lies beyond the band.
 WORTH_A_SECTION = 10.0
+# Gain times f_H further off than this says nothing of f_u: other poles and zeros lie in between.
+MEANS_NOTHING = 3.0
 LEFT_OUT = "leave it out: who sets the band edges is in the review"
 
 
@@ -77,6 +81,8 @@ def _facts(found: Review, numbers: Numbers, unity: Unity | None, simulated: Simu
     edge = found.f_high.hand_hz if found.f_high is not None else None
     hand_hz = None if edge is None else abs(numbers.midband.gain) * edge
     hz = simulated.hz if simulated is not None else unity.hz if unity is not None else None
+    if hand_hz is not None and hz is not None and not 1.0 / MEANS_NOTHING < hand_hz / hz < MEANS_NOTHING:
+        hand_hz = None
     return UnityFacts(
         simulated_hz=simulated.hz if simulated else None,
         exact_hz=unity.hz if unity else None,
@@ -95,3 +101,14 @@ def _facts(found: Review, numbers: Numbers, unity: Unity | None, simulated: Simu
         gain_bandwidth_exact_hz=unity.gain_bandwidth_hz if unity else None,
         further_hz=unity.further_hz if unity else (),
     )
+
+
+def with_formula(facts: UnityFacts, steps: Sequence[UnityStep]) -> UnityFacts:
+    """Give f_u by hand as the formulas of the amplifier have it, the last of them; as it was where there is none."""
+    worked = [step for step in steps if step.figure == "f_u"]
+    hz = facts.simulated_hz if facts.simulated_hz is not None else facts.exact_hz
+    if not worked or hz is None:
+        return facts
+    last = worked[-1]
+    formula = worked[0].formula + (", with further poles and zeros" if len(worked) > 1 else "")
+    return replace(facts, hand_hz=last.hand, difference=last.hand / hz - 1.0, hand_formula=formula)

@@ -45,7 +45,8 @@ class UnityNode(Struct, frozen=True):
 class UnityFacts(Struct, frozen=True):
     """The unity gain frequency f_u: the first |H| = 1 beyond mid-band, of a ratio that exceeds 1 there.
 
-    hand_hz: mid-band gain times f_H by hand, as one dominant pole has it; difference: hand_hz/simulated_hz − 1 (against
+    hand_hz: by hand_formula, which is mid-band gain times f_H by hand where empty, as one dominant pole has it; None
+    where that is off by more than a factor 3; difference: hand_hz/simulated_hz − 1 (against
     exact where nothing was simulated). slope: d ln|H|/d ln f there, exact. phase_margin_deg: 180° plus the phase beyond
     mid-band; gain_margin_db: how far |H| is below 1 where that phase first reaches −180°, None where it never does;
     both simulated, *_exact_* by algebra. gain_bandwidth_hz: |A_mid|·f_H, simulated. further_hz: later |H| = 1, exact.
@@ -68,6 +69,7 @@ class UnityFacts(Struct, frozen=True):
     further_hz: tuple[float, ...] = ()
     elements: tuple[UnityElement, ...] = ()
     nodes: tuple[UnityNode, ...] = ()
+    hand_formula: str = ""
 
 
 class PhaseRow(Struct, frozen=True):

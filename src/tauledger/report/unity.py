@@ -4,13 +4,12 @@ from __future__ import annotations
 
 from tauledger.record import Review, UnityElement, UnityFacts, UnityNode
 from tauledger.report.layout import Block, Prose, Row, Section, Table
+from tauledger.report.marks import in_short, mark
 from tauledger.report.wording import NO_NUMBER, coefficients, degrees, move, number, part_title, value_of
 
 _MOST_ELEMENTS, _MOST_NODES = 6, 4
-_BIAS, _DEVICE = "§", "¶"
 MEANS_NOTHING = 3.0
 FIRST_ORDER = "to first order, operating point held"
-MARKS = f"{_BIAS} takes part in the operating point, and moves it; {_DEVICE} inside a device"
 
 
 def unity_gain(review: Review) -> Section:
@@ -37,8 +36,7 @@ def who_sets(review: Review, *, verbose: bool = False) -> Section:
             rows.append(Row(("  recomputed", *again_cells(one, facts))))
     head = ("WHO SETS f_u AND MARGIN: 10 % less of", "value", "f_u", "margin", "gain margin")
     blocks: list[Block] = [Table("lrrrr", head, tuple(rows))]
-    marks = f"; {MARKS}" if any(not one.free for one in shown) else ""
-    blocks.append(Prose(f"{FIRST_ORDER}{marks}", lead="  "))
+    blocks.append(Prose("; ".join((FIRST_ORDER, *in_short(shown))), lead="  "))
     nodes = facts.nodes if verbose else facts.nodes[:_MOST_NODES]
     if nodes:
         at = tuple(Row(node_cells(node, facts)) for node in nodes)
@@ -98,11 +96,10 @@ def margins(facts: UnityFacts) -> tuple[float | None, float | None]:
 
 def element_cells(one: UnityElement) -> tuple[str, str, str, str, str]:
     """Give an element with its value and what 10 % less of it does to f_u, margin and gain margin, to first order."""
-    mark = "" if one.free else _BIAS if one.moves_bias else _DEVICE
     value = value_of(one.name, one.owner, one.value, one.unit)
     gain_margin = NO_NUMBER if one.gain_margin_db is None else signed(-10.0 * one.gain_margin_db, " dB")
     return (
-        part_title(one.name, one.owner) + mark,
+        part_title(one.name, one.owner) + mark(one),
         value,
         move(0.1 * one.f_unity),
         signed(-10.0 * one.phase_margin_deg, "°"),
