@@ -2,11 +2,10 @@
 
 from __future__ import annotations
 
-from tauledger.record import Help, Review
+from tauledger.record import Review
 from tauledger.report.layout import Block, Prose, Row, Section, Table
-from tauledger.report.wording import move, part_title, value_of
-
-_BIAS, _DEVICE = "§", "¶"
+from tauledger.report.marks import in_short, mark
+from tauledger.report.wording import change, move, part_title, value_of
 
 
 def what_would_help(review: Review) -> Section:
@@ -15,7 +14,7 @@ def what_would_help(review: Review) -> Section:
         return Section(())
     rows: list[Row] = []
     for one in review.helps:
-        title = part_title(one.name, one.owner) + _mark(one)
+        title = part_title(one.name, one.owner) + mark(one)
         value = value_of(one.name, one.owner, one.value, one.unit)
         rows.append(Row((title, value, move(one.f_high), move(one.f_low), move(one.gain))))
         if one.gain_rerun is not None:
@@ -24,28 +23,14 @@ def what_would_help(review: Review) -> Section:
                     (
                         "  recomputed",
                         "",
-                        move(_change(one.f_high_rerun_hz, review.f_high.exact_hz if review.f_high else None)),
-                        move(_change(one.f_low_rerun_hz, review.f_low.exact_hz if review.f_low else None)),
+                        move(change(one.f_high_rerun_hz, review.f_high.exact_hz if review.f_high else None)),
+                        move(change(one.f_low_rerun_hz, review.f_low.exact_hz if review.f_low else None)),
                         move(one.gain_rerun),
                     )
                 )
             )
     head = ("WHAT WOULD HELP: 10 % less of", "value", "f_H", "f_L", "gain")
     blocks: list[Block] = [Table("lrrrr", head, tuple(rows))]
-    told = ["to first order, operating point held"]
-    if any(one.moves_bias for one in review.helps):
-        told.append(f"{_BIAS} takes part in the operating point, and moves it")
-    if any(not one.free and not one.moves_bias for one in review.helps):
-        told.append(f"{_DEVICE} inside a device: another device, or another bias")
+    told = ("to first order, operating point held", *in_short(review.helps))
     blocks.append(Prose("; ".join(told), lead="  "))
     return Section(tuple(blocks), major=True)
-
-
-def _mark(one: Help) -> str:
-    if one.free:
-        return ""
-    return _BIAS if one.moves_bias else _DEVICE
-
-
-def _change(hz: float | None, before: float | None) -> float | None:
-    return hz / before - 1.0 if hz is not None and before else None

@@ -9,9 +9,9 @@ from msgspec import Struct
 from tauledger.record import Help, PartRow, Review, known_hz
 from tauledger.report.headline import limiting_node, line_at_the_edge
 from tauledger.report.lower import ends, in_parallel
+from tauledger.report.marks import kind
 from tauledger.report.sentences import believed, plain, sentence
 from tauledger.report.shown import unity_shown
-from tauledger.report.tables.helps import change, kind
 from tauledger.report.tables.roots import stable_as_drawn
 from tauledger.report.tables.upper import places, term_seconds, whole_s
 from tauledger.report.tables.way import method_title
@@ -19,6 +19,7 @@ from tauledger.report.unity import decibels, margins, signed
 from tauledger.report.wording import (
     EDGE,
     amount,
+    change,
     degrees,
     fraction,
     move,
@@ -89,8 +90,8 @@ def _is_it_stable(review: Review) -> str:
     if cards:
         most = max(cards, key=lambda one: abs(one.phase_margin_deg))
         of = part_title(most.name, most.owner)
-        change = signed(-10.0 * most.phase_margin_deg, "°")
-        said += f"; 10 % less of {of} changes the phase margin by {change} and f_u by {move(0.1 * most.f_unity)}"
+        moved = signed(-10.0 * most.phase_margin_deg, "°")
+        said += f"; 10 % less of {of} changes the phase margin by {moved} and f_u by {move(0.1 * most.f_unity)}"
     return f"{said}."
 
 

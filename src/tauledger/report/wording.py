@@ -84,6 +84,11 @@ def degrees(value: float | None) -> str:
     return f"{value if abs(value) >= NOTHING_DEG else 0.0:.1f}°"
 
 
+def change(after: float | None, before: float | None) -> float | None:
+    """Give how far a value lies from what it was, as a fraction; None where either is missing or nothing was there."""
+    return after / before - 1.0 if after is not None and before else None
+
+
 def fraction(value: float | None) -> str:
     """Write a share as per cent without a plus sign."""
     return move(value).removeprefix("+")

@@ -2,15 +2,11 @@
 
 from __future__ import annotations
 
-import re
-
 from tauledger.record import UnityFacts
+from tauledger.report.marks import at_length, mark
 from tauledger.report.tables.grid import Grid, GridRow, columns, said
-from tauledger.report.tables.helps import marks
 from tauledger.report.unity import again_cells, element_cells, figures, node_cells, remarks
-
-# In a table for reading a mark stands apart from the name, as in all others.
-_MARK = re.compile(r"(?=[§¶]$)")
+from tauledger.report.wording import part_title
 
 
 def unity_gain(facts: UnityFacts) -> Grid:
@@ -25,12 +21,13 @@ def who_sets(facts: UnityFacts) -> Grid:
     """Give what 10 % less of every element does to f_u and both margins, the first two recomputed."""
     rows = []
     for one in facts.elements:
-        title, *cells = element_cells(one)
-        rows.append(GridRow((_MARK.sub(" ", title), *cells), part=one.name))
+        _, *cells = element_cells(one)
+        # in a table for reading a mark stands apart from the name
+        title = f"{part_title(one.name, one.owner)} {mark(one)}".rstrip()
+        rows.append(GridRow((title, *cells), part=one.name))
         if one.f_unity_rerun_hz is not None:
             rows.append(GridRow(("recomputed", *again_cells(one, facts)), "part"))
-    kinds = {"bias" if one.moves_bias else "device" for one in facts.elements if not one.free}
-    note = " ".join(("To first order; the operating point is held.", *marks(kinds)))
+    note = " ".join(("To first order; the operating point is held.", *at_length(facts.elements)))
     heads = columns("10 % less of", "value", "f_u", "phase margin", "gain margin")
     return said(Grid("Who sets f_u and margin", heads, tuple(rows), note))
 

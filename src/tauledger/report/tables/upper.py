@@ -14,6 +14,7 @@ from tauledger.report.wording import (
     SOLVED,
     amount,
     by_loop,
+    change,
     fraction,
     move,
     number,
@@ -167,7 +168,7 @@ def shares(review: Review) -> Grid:
                 amount(part),
                 share(part.share.f_high),
                 number(part.ten_percent_less.f_high_hz, "Hz"),
-                _change(part.ten_percent_less.f_high_hz, exact),
+                move(change(part.ten_percent_less.f_high_hz, exact)),
             ),
             part=part.name,
         )
@@ -310,7 +311,3 @@ def _coil_row(row: InductorFacts, review: Review) -> GridRow:
 
 def _of(seconds: float | None, whole: float) -> str:
     return fraction(seconds / whole) if seconds is not None and whole else NO_NUMBER
-
-
-def _change(less: float | None, exact: float | None) -> str:
-    return move(less / exact - 1.0) if less is not None and exact else NO_NUMBER

@@ -4,11 +4,11 @@ from __future__ import annotations
 
 from tauledger.quantity import decibel_unit
 from tauledger.record import Remedy, Review, WantChange, WantFacts
+from tauledger.report.marks import BIAS
 from tauledger.report.tables.grid import Grid, GridRow, columns
 from tauledger.report.wording import NO_NUMBER, degrees, nominal, number, part_title
 
 NAMES = {"margin": "phase margin", "gain_margin": "gain margin", "f_u": "f_u", "f_h": "f_H", "f_l": "f_L"}
-BIAS = "§"
 # What is shown beside the wanted figure, and the head over that itself.
 BESIDE = {
     "margin": ("f_u", "gain"),
