@@ -1,7 +1,9 @@
 """The report room: a Review becomes one file per format; renderers get the Review and nothing else.
 
-json.py writes the document `tauledger.review/1` and its schema. terminal.py writes the page of text. Its sections are
-summary (what was reviewed, band, bias), upper (budget, shares), steps, lower, poles, and reasons (warning, causes,
-closing); wording.py says how things are named and numbers written; layout.py makes lines of tables and prose.
+json.py, csv.py   every number, by the names of the document `tauledger.review/1`
+terminal.py       the page of text: its sections stand in the files of this folder, layout.py makes lines of them
+document.py       the report for reading, in sections/ of tables/, charts/ and drawing/; html.py and markdown.py print it
+wording.py        how things are named and numbers written, marks.py, sentences.py, terms.py: in all formats alike
+
 The room imports only record and quantity; rich is imported by terminal.py alone, and only for colour.
 """
