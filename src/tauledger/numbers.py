@@ -142,7 +142,7 @@ def _per_unit(circuit: Circuit) -> Circuit:
 
 
 def recompute(numbers: Numbers, scale: Mapping[str, float]) -> EdgeFrequencies:
-    """Give the exact band edges with the named parts' values multiplied: bias and mid-band frequency held.
+    """Give the exact band edges with the named parts' values multiplied: bias and plateau's frequency held.
 
     scale: factor by part name ("CL", "Q1.c_mu").
     Raises KeyError where a name belongs to no part.

@@ -13,10 +13,11 @@ from tauledger.devices.parts import Part, capacitance, inductance, resistance, t
 from tauledger.network.assemble import Network
 from tauledger.network.bands import Bands, classify, find_midband
 from tauledger.network.constants import midband_inverse, open_constants
-from tauledger.network.edges import at_same_frequency, find_edges
+from tauledger.network.edges import find_edges
 from tauledger.network.gain_setting import impedance, impedance_above, impedance_below
 from tauledger.network.identities import check, open_identities
 from tauledger.network.lower import short_constants
+from tauledger.network.midband import in_changed
 from tauledger.network.recompute import scaled
 from tauledger.network.shares import find_shares
 from tauledger.network.spectrum import pole_frequencies
@@ -98,7 +99,7 @@ def test_shares_of_a_charge_amplifier_are_what_a_small_change_does() -> None:
     shares = find_shares(network, bands.midband, high.hz, bands.class_of)
     for name in ("CS", "CF", "CIN", "CX"):
         nudged = (scaled(network, {name: factor}) for factor in (1.001, 0.999))
-        up, down = (find_edges(changed, at_same_frequency(changed, bands.midband)).f_high for changed in nudged)
+        up, down = (find_edges(changed, in_changed(changed, bands.midband)).f_high for changed in nudged)
         assert up is not None
         assert up.hz is not None
         assert down is not None

@@ -2,16 +2,19 @@
 
 from __future__ import annotations
 
+import numpy as np
 import pytest
 from hypothesis import given, settings
 
 import amplifiers
 from strategies import networks
-from tauledger.devices.parts import capacitance, resistance
+from tauledger.devices.parts import capacitance, inductance, resistance
 from tauledger.network.assemble import Network
-from tauledger.network.bands import find_midband
+from tauledger.network.bands import classify, find_midband
 from tauledger.network.edges import find_edges
+from tauledger.network.first_order import rerun
 from tauledger.network.recompute import each_scaled, edge_frequencies, scaled, without
+from tauledger.network.shares import find_shares
 
 
 def test_scaling_nothing_changes_nothing() -> None:
@@ -80,3 +83,33 @@ def test_all_reactive_values_scaled_together_scale_both_edges(network: Network) 
     after = edge_frequencies(scaled(network, dict.fromkeys(names, 1.001)), midband)
     if midband.plateau and edges.f_high is not None and edges.f_high.hz is not None:
         assert after.f_high == pytest.approx(edges.f_high.hz / 1.001, rel=1e-5)
+
+
+def tuned(q: float) -> Network:
+    """A source of 1 kΩ on a circuit tuned to 10 MHz."""
+    omega = 2.0 * np.pi * 10e6
+    return amplifiers.network(
+        resistance("R", "in", "out", 1e3),
+        inductance("L", "out", "0", 1e3 / (q * omega)),
+        capacitance("C", "out", "0", q / (1e3 * omega)),
+    )
+
+
+@pytest.mark.parametrize("q", [3.0, 30.0, 1000.0])
+@pytest.mark.parametrize("name", ["L", "C"])
+def test_the_edges_of_a_tuned_circuit_move_with_its_maximum(q: float, name: str) -> None:
+    network = tuned(q)
+    midband = find_midband(network)
+    edges = find_edges(network, midband)
+    changed = scaled(network, {name: 0.9})
+    anew = edge_frequencies(changed, find_midband(changed))
+    exact = rerun(network, midband, edges, {name: 0.9})
+    for again in (each_scaled(network, midband, edges, 0.9)[name], edge_frequencies(changed, midband), exact):
+        assert again.f_high == pytest.approx(anew.f_high, rel=1e-9)
+        assert again.f_low == pytest.approx(anew.f_low, rel=1e-9)
+    assert exact.gain == pytest.approx(1.0, rel=1e-9)
+    assert anew.f_high is not None
+    assert edges.f_high is not None
+    assert edges.f_high.hz is not None
+    share = find_shares(network, midband, edges.f_high.hz, classify(network, midband).class_of).parts[name]
+    assert anew.f_high / edges.f_high.hz == pytest.approx(0.9**-share, rel=0.01)

@@ -26,8 +26,8 @@ from tauledger.devices.parts import (
 )
 from tauledger.errors import NetworkError
 from tauledger.network.assemble import Network
-from tauledger.network.edges import at_same_frequency, find_edges
-from tauledger.network.midband import MidBand, find_midband
+from tauledger.network.edges import find_edges
+from tauledger.network.midband import MidBand, find_midband, in_changed
 from tauledger.network.recompute import edge_frequencies, scaled
 from tauledger.network.solve import log_slope, on_axis, response, solve
 from tauledger.network.targets import (
@@ -84,7 +84,7 @@ def high_of(network: Network, midband: MidBand) -> float:
 
 def figures(network: Network, midband: MidBand) -> tuple[float, float, float, float]:
     """ln f_u, phase margin, gain margin and ln of the gain-bandwidth product, mid-band held at its frequency."""
-    same = at_same_frequency(network, midband)
+    same = in_changed(network, midband)
     found = find_unity(network, same)
     high = edge_frequencies(network, midband).f_high
     assert found is not None
@@ -232,7 +232,7 @@ def test_peaking_moves_as_the_changed_network_says_though_its_frequency_moves_to
     found = peaking_moves(network, midband, edge.peaking_at_hz)
 
     def peaking(changed: Network) -> float:
-        high = find_edges(changed, at_same_frequency(changed, midband)).f_high
+        high = find_edges(changed, in_changed(changed, midband)).f_high
         assert high is not None
         return high.peaking_db
 
@@ -249,7 +249,7 @@ def test_a_followed_unity_gain_is_the_one_that_a_search_finds(factor: float) -> 
         changed = scaled(network, {name: factor})
         found, searched = (
             follow_unity(changed, midband, unity),
-            find_unity(changed, at_same_frequency(changed, midband)),
+            find_unity(changed, in_changed(changed, midband)),
         )
         assert found is not None
         assert searched is not None
@@ -262,7 +262,7 @@ def test_a_unity_gain_that_moves_far_is_searched_for_and_one_that_is_gone_is_non
     midband, unity = unity_of(network)
     gm = next(part.name for part in network.parts if part.kind == "transconductance")
     far = follow_unity(scaled(network, {gm: 0.05}), midband, unity)
-    searched = find_unity(changed := scaled(network, {gm: 0.05}), at_same_frequency(changed, midband))
+    searched = find_unity(changed := scaled(network, {gm: 0.05}), in_changed(changed, midband))
     assert (far is None) == (searched is None)
     if far is not None and searched is not None:
         assert far.hz == pytest.approx(searched.hz, rel=1e-10)

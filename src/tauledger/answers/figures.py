@@ -15,9 +15,9 @@ from numpy.typing import NDArray
 
 from tauledger.network.admittance import all_pass
 from tauledger.network.assemble import Network
-from tauledger.network.edges import HALF_POWER, at_same_frequency, find_edges
+from tauledger.network.edges import HALF_POWER, find_edges
 from tauledger.network.lines import lumped
-from tauledger.network.midband import MidBand, find_midband
+from tauledger.network.midband import MidBand, find_midband, in_changed
 from tauledger.network.spectrum import pole_frequencies
 from tauledger.network.unity import HALF_TURN_DEG, find_unity
 from tauledger.solution import Sweep
@@ -73,7 +73,7 @@ def reference_in(network: Network, midband: MidBand, *, chosen: bool) -> MidBand
     Raises NetworkError where the network has no unique solution, InputError where no signal passes.
     """
     if chosen or midband.frequency_hz == 0.0:
-        return at_same_frequency(network, midband)
+        return in_changed(network, midband)
     return find_midband(network)
 
 

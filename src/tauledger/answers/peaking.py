@@ -10,7 +10,8 @@ from msgspec.structs import replace
 from tauledger.answers.answer import Subject
 from tauledger.answers.elements import PROVED, Element, elements
 from tauledger.compose.helps import LESS
-from tauledger.network.edges import Edge, at_same_frequency, find_edges
+from tauledger.network.edges import Edge, find_edges
+from tauledger.network.midband import in_changed
 from tauledger.network.recompute import scaled
 from tauledger.network.targets import PERCENT, peaking_moves
 from tauledger.numbers import Numbers
@@ -82,6 +83,6 @@ def _element(one: Element, move: float) -> PeakElement:
 
 def _again(numbers: Numbers, edge: str, one: Element) -> float | None:
     changed = scaled(numbers.network, {one.name: one.ten_percent_less})
-    edges = find_edges(changed, at_same_frequency(changed, numbers.midband))
+    edges = find_edges(changed, in_changed(changed, numbers.midband))
     found: Edge | None = edges.f_high if edge == "f_high" else edges.f_low
     return None if found is None else found.peaking_db

@@ -19,8 +19,9 @@ from tauledger.answers.figures import MARGINS, Figures, figures_of
 from tauledger.errors import InputError, NetworkError
 from tauledger.hand.compensated import CompensatedStage
 from tauledger.network.altered import AddedCapacitor, SeriesResistor, altered
-from tauledger.network.edges import HALF_POWER, at_same_frequency
+from tauledger.network.edges import HALF_POWER
 from tauledger.network.first_order import follow_level
+from tauledger.network.midband import in_changed
 from tauledger.network.targets import UnityMove, follow_unity, unity_moves
 from tauledger.network.unity import find_unity
 from tauledger.numbers import Numbers
@@ -209,7 +210,7 @@ def _follow(trial: Trial, quantity: str, numbers: Numbers) -> Callable[[float], 
 
     def by_edge(factor: float) -> float | None:
         changed = altered(numbers.network, trial.factors(factor), trial.series, trial.added)
-        level = HALF_POWER * abs(at_same_frequency(changed, numbers.midband).gain)
+        level = HALF_POWER * abs(in_changed(changed, numbers.midband).gain)
         start = known[min(known, key=lambda one: abs(math.log(one / factor)))]
         followed = follow_level(changed, level, np.array([start]))
         if followed is None:

@@ -36,6 +36,7 @@ from tauledger.record import (
 # ln 9 / 2π: 10-90 % rise time of one pole times its -3 dB frequency
 RISE_TIME_BANDWIDTH = math.log(9.0) / (2.0 * math.pi)
 PEAKS = 0.1
+STEP_HOLDS = 10.0
 # ngspice and the network agree to 1e-9; a last step smaller than this says nothing.
 WORTH_A_STEP = 1e-4
 
@@ -129,7 +130,7 @@ def _edge_facts(name: EdgeName, numbers: Numbers, explanation: Explanation) -> E
     if reference is None:
         return None
     # 0.35/f_H holds for a response that falls like one pole; one that peaks is faster and overshoots
-    flat = exact is None or exact.peaking_db < PEAKS
+    like_one_pole = (exact is None or exact.peaking_db < PEAKS) and _has_a_step(numbers, reference)
     return EdgeFacts(
         simulated_hz=simulated,
         exact_hz=exact_hz,
@@ -139,8 +140,17 @@ def _edge_facts(name: EdgeName, numbers: Numbers, explanation: Explanation) -> E
         phase_deg=exact.phase_deg if exact else None,
         peaking_db=exact.peaking_db if exact else 0.0,
         peaking_at_hz=exact.peaking_at_hz if exact else None,
-        rise_time_s=RISE_TIME_BANDWIDTH / reference if name == "f_high" and flat else None,
+        rise_time_s=RISE_TIME_BANDWIDTH / reference if name == "f_high" and like_one_pole else None,
     )
+
+
+def _has_a_step(numbers: Numbers, f_high_hz: float) -> bool:
+    """Whether a step of the drive is a step at the output: there is a plateau, and f_L a decade below f_H or more."""
+    simulated, edges = numbers.simulated, numbers.edges
+    if simulated is not None:
+        return simulated.midband.plateau and (simulated.f_low_hz or 0.0) <= f_high_hz / STEP_HOLDS
+    low = edges.f_low.hz if edges.f_low is not None else None
+    return numbers.midband.plateau and (low or 0.0) <= f_high_hz / STEP_HOLDS
 
 
 def _estimates(name: EdgeName, edge: EdgeFacts | None, explanation: Explanation) -> tuple[Estimate, ...]:

@@ -82,7 +82,7 @@ class _Side(Struct, frozen=True):
 def find_edges(network: Network, midband: MidBand) -> Edges:
     """Find the first −3 dB crossing on either side of mid-band, refined to rounding.
 
-    midband: its frequency and gain are the reference; see `at_same_frequency` for a changed network.
+    midband: its frequency and gain are the reference; see `midband.in_changed` for a changed network.
     Raises NetworkError where the network has no unique solution.
     """
     scan = _scan(network, midband)
@@ -134,11 +134,6 @@ def _scan(network: Network, midband: MidBand) -> tuple[Real, Complex, Complex, C
         level = HALF_POWER * abs(midband.gain)
         frequency, h = with_ripple(network, frequency, h, from_hz=midband.frequency_hz, level=level)
     return frequency, h, poles, zeros
-
-
-def at_same_frequency(network: Network, midband: MidBand) -> MidBand:
-    """Give the reference at the same frequency in a changed network; its plateau's extent is carried over."""
-    return replace(midband, gain=complex(response(network, np.array([midband.frequency_hz]))[0]))
 
 
 def _sides(midband: MidBand, frequency: Real, magnitude: Real) -> tuple[_Side, _Side]:

@@ -1,8 +1,8 @@
 """What a small change of one element does to both band edges and the mid-band gain, to first order and exactly.
 
 ∂ln H/∂ln v = −v·(λᵀ out)(controlᵀ x)/H for a part v·out·controlᵀ of Y (times s for a reactive one); the edge f_c moves
-by ∂ln f_c/∂ln v = −[Re ∂ln H(f_c)/∂ln v − Re ∂ln H(f_mid)/∂ln v] / (d ln|H|/d ln f at f_c), f_mid held. Of coupled
-inductors k is held, so that M follows.
+by ∂ln f_c/∂ln v = −[Re ∂ln H(f_c)/∂ln v − Re ∂ln H(f_mid)/∂ln v] / (d ln|H|/d ln f at f_c), f_mid held (at a
+maximum of |H|, which moves, that is the same to first order). Of coupled inductors k is held, so that M follows.
 
 Source: Director and Rohrer, "The generalized adjoint network and network sensitivities", IEEE Trans. Circuit Theory
 CT-16(3), 1969.
@@ -19,10 +19,10 @@ from tauledger.devices.parts import Part
 from tauledger.network.assemble import Network, incidence
 from tauledger.network.edges import HALF_POWER, Edges
 from tauledger.network.lines import line_moments
-from tauledger.network.midband import MidBand
+from tauledger.network.midband import MidBand, in_changed
 from tauledger.network.reactances import at_held_coupling, moments, reactances, together
 from tauledger.network.recompute import edge_frequencies, scaled
-from tauledger.network.solve import Real, log_slope, on_axis, response, solve
+from tauledger.network.solve import Real, log_slope, on_axis, solve
 
 RESISTIVE = ("conductance", "transconductance", "delayed transconductance")
 # Newton's step in ln f; the next one is its square.
@@ -39,7 +39,7 @@ class Sensitivity(Struct, frozen=True):
 
 
 class Recomputed(Struct, frozen=True):
-    """Both band edges in Hz and |H| at the held mid-band frequency, exact; None for an edge that does not exist."""
+    """Both band edges in Hz and |H| at mid-band, exact; None for an edge that does not exist."""
 
     f_high: float | None
     f_low: float | None
@@ -82,13 +82,16 @@ def rerun(network: Network, midband: MidBand, edges: Edges, factors: Mapping[str
     Raises NetworkError where the network has no unique solution, KeyError where a name belongs to no part.
     """
     changed = scaled(network, factors)
-    gain = float(abs(response(changed, np.array([midband.frequency_hz]))[0]))
+    reference = in_changed(changed, midband)
+    gain = abs(reference.gain)
     if network.lines:
         # the first of many crossings may be another one now
         both = edge_frequencies(changed, midband)
         return Recomputed(both.f_high, both.f_low, gain)
     starts = [edge.hz if edge is not None else None for edge in (edges.f_high, edges.f_low)]
-    known = np.array([hz for hz in starts if hz is not None])
+    # the edges of a resonance go with its maximum
+    moved = reference.frequency_hz / midband.frequency_hz if midband.maximum else 1.0
+    known = moved * np.array([hz for hz in starts if hz is not None])
     followed = follow_level(changed, HALF_POWER * gain, known) if len(known) else known
     if followed is None:
         both = edge_frequencies(changed, midband)

@@ -19,6 +19,7 @@ PLATEAU_DECADES = 0.5
 SAME_GAIN = 10.0 ** (-3.0 / 20.0)
 PEAK = 1.01
 POINTS_PER_DECADE = 40
+UPHILL_POINTS = 200
 MARGIN = 1e3
 CONSTANT_RANGE_HZ = (1.0, 10.0)
 NO_SIGNAL = 1e-14
@@ -35,6 +36,7 @@ class MidBand(Struct, frozen=True):
     limit, both None where there is no plateau. gain: complex H there.
     aids: names of measuring aids (aids.py), which act below floor_hz alone; nothing below that belongs to the
     amplifier. A plateau that reaches down to them reaches DC: from_hz is 0 and frequency_hz is floor_hz.
+    maximum: |H| has its maximum there, and no plateau; in a changed network the reference is where that has moved.
     """
 
     frequency_hz: float
@@ -43,6 +45,7 @@ class MidBand(Struct, frozen=True):
     gain: complex
     aids: tuple[str, ...] = ()
     floor_hz: float = 0.0
+    maximum: bool = False
 
     @property
     def reaches_dc(self) -> bool:
@@ -125,9 +128,30 @@ def _find(network: Network, at_hz: float | None) -> MidBand:
         return MidBand(frequency, best.from_hz, best.to_hz, complex(response(network, np.array([frequency]))[0]))
     peak = int(np.argmax(scan.magnitude))
     frequency = float(scan.frequency_hz[peak])
-    if 0 < peak < len(scan.frequency_hz) - 1:
+    inside = 0 < peak < len(scan.frequency_hz) - 1
+    if inside:
         frequency = _bisect(network, float(scan.frequency_hz[peak - 1]), float(scan.frequency_hz[peak + 1]))
-    return MidBand(frequency, None, None, complex(response(network, np.array([frequency]))[0]))
+    gain = complex(response(network, np.array([frequency]))[0])
+    return MidBand(frequency, None, None, gain, maximum=inside)
+
+
+def in_changed(network: Network, midband: MidBand) -> MidBand:
+    """Give the reference in a changed network: at the same frequency, or where the maximum has moved to.
+
+    The plateau's extent is carried over. A maximum is followed uphill to at most twice or half its frequency; one that
+    is not found there stays where it was.
+    Raises NetworkError where the network has no unique solution.
+    """
+    hz = midband.frequency_hz
+    if midband.maximum:
+        uphill = float(log_slope(network, solve(network, on_axis(hz)))[0].real) > 0.0
+        away = np.geomspace(hz, 2.0 * hz if uphill else 0.5 * hz, UPHILL_POINTS)
+        rises = log_slope(network, solve(network, on_axis(away))).real > 0.0
+        turns = np.flatnonzero(rises != uphill)
+        if len(turns) and turns[0] > 0:
+            beside = sorted((float(away[turns[0] - 1]), float(away[turns[0]])))
+            hz = _bisect(network, beside[0], beside[1])
+    return replace(midband, frequency_hz=hz, gain=complex(response(network, np.array([hz]))[0]))
 
 
 def frequency_range(poles: Complex, zeros: Complex) -> tuple[float, float] | None:

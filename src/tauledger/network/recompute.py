@@ -1,4 +1,4 @@
-"""The network solved again with parts of other value: bias and reference frequency held, the change finite.
+"""The network solved again with parts of other value: bias and plateau's frequency held, the change finite.
 
 This is what "rerun" and "10 % less" mean. Scaling one part changes Y by a matrix of rank one (rank_one.py), so all
 single changes are scanned together from the solutions of the unchanged network, and only the crossings are solved anew.
@@ -15,8 +15,8 @@ from msgspec.structs import replace
 from tauledger.circuit import fold
 from tauledger.devices.parts import Part
 from tauledger.network.assemble import Network, assemble, without_loose_ends
-from tauledger.network.edges import HALF_POWER, Edges, at_same_frequency, crossing, first_crossings
-from tauledger.network.midband import MidBand
+from tauledger.network.edges import HALF_POWER, Edges, crossing, first_crossings
+from tauledger.network.midband import MidBand, in_changed
 from tauledger.network.rank_one import changed_response, places_of_change
 from tauledger.network.reactances import Reactances, reactances
 from tauledger.network.solve import Complex, Real, on_axis
@@ -64,14 +64,14 @@ def without(network: Network, names: frozenset[str]) -> Network:
 
 
 def edge_frequencies(network: Network, midband: MidBand) -> EdgeFrequencies:
-    """Give the band edges of a changed network, its reference at the unchanged mid-band frequency.
+    """Give the band edges of a changed network, its reference at the unchanged mid-band frequency or its own maximum.
 
-    None where no signal passes there any more.
+    None where no signal passes at the unchanged one any more.
     Raises NetworkError where the network has no unique solution.
     """
     if not passes_signal(network, on_axis(midband.frequency_hz)):
         return EdgeFrequencies(None, None)
-    return EdgeFrequencies(*first_crossings(network, at_same_frequency(network, midband)))
+    return EdgeFrequencies(*first_crossings(network, in_changed(network, midband)))
 
 
 def each_scaled(network: Network, midband: MidBand, edges: Edges, factor: float) -> dict[str, EdgeFrequencies]:
@@ -96,8 +96,8 @@ def each_scaled(network: Network, midband: MidBand, edges: Edges, factor: float)
     for k, part in enumerate(terms.parts):
         if part.kind == "mutual inductance" and part.name not in loose:
             continue
-        if part.kind in ("block", "mutual inductance") or fold(part.owner) in tied:
-            # several terms at once are no change of rank one
+        if midband.maximum or part.kind in ("block", "mutual inductance") or fold(part.owner) in tied:
+            # several terms at once are no change of rank one, and a maximum moves
             if part.name not in result:
                 result[part.name] = edge_frequencies(scaled(network, {part.name: factor}), midband)
             continue

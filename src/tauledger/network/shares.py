@@ -2,8 +2,9 @@
 
 With F = ln|H(f_c)| − ln|H(f_mid)| fixed at an edge f_c, a change of one value moves the edge by ∂ln f_c/∂ln C =
 −share, share = [Re(−λᵀ(∂Y/∂ln C)x/H) at f_c − the same at f_mid] / (d ln|H|/d ln f at f_c), with f_mid held where it
-is. Scaling all reactive values scales frequency, so the shares add to 1 − slope(f_mid)/slope(f_c); the last term is
-the defect, 0 where the reference is stationary.
+is. A maximum of |H| moves with the change, which to first order is the same. Scaling all reactive values scales
+frequency, so the shares add to 1 − slope(f_mid)/slope(f_c); the last term is the defect, 0 where the reference is
+stationary.
 
 Source: Director and Rohrer, "The generalized adjoint network and network sensitivities", IEEE Trans. Circuit Theory
 CT-16(3), 1969 (adjoint sensitivities).

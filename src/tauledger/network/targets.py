@@ -20,11 +20,11 @@ from tauledger.circuit import GROUND
 from tauledger.devices.parts import Part
 from tauledger.network.altered import AddedCapacitor, with_capacitor
 from tauledger.network.assemble import Network, incidence
-from tauledger.network.edges import at_same_frequency
 from tauledger.network.first_order import follow_level
+from tauledger.network.follower import polarity, polarity_offset_deg
 from tauledger.network.identities import ON_THE_AXIS, Identity
 from tauledger.network.lines import line_moments
-from tauledger.network.midband import MidBand
+from tauledger.network.midband import MidBand, in_changed
 from tauledger.network.reactances import REACTIVE, at_held_coupling, moments, reactances, together
 from tauledger.network.solve import Complex, Real, log_slope, on_axis, solve
 from tauledger.network.unity import HALF_TURN_DEG, Unity, find_unity
@@ -80,7 +80,7 @@ class Followed(Struct, frozen=True):
     """Unity gain frequency in Hz and phase margin in degrees of a changed network."""
 
     hz: float
-    phase_margin_deg: float
+    phase_margin_deg: float | None
 
 
 def log_sensitivity(network: Network, frequency_hz: Real) -> LogSensitivity:
@@ -115,22 +115,26 @@ def unity_moves(network: Network, midband: MidBand, unity: Unity, f_high_hz: flo
 
     Raises NetworkError where the network has no unique solution.
     """
-    asked = [midband.frequency_hz, unity.hz, unity.gain_margin_at_hz, f_high_hz]
+    asked = [midband.frequency_hz, unity.hz, unity.margin_at_hz, unity.gain_margin_at_hz, f_high_hz]
     found = log_sensitivity(network, np.array([hz if hz is not None else unity.hz for hz in asked]))
-    _, at_unity, at_half_turn, at_edge = found.slope
+    _, at_unity, at_margin, at_half_turn, at_edge = found.slope
+    # a margin by which the gain may fall grows with the gain
+    grows = 1.0 if _may_fall(unity) else -1.0
 
     def move(changed: Complex) -> UnityMove:
-        mid, one, turned, edge = changed
+        mid, one, least, turned, edge = changed
         f_unity = -one.real / at_unity.real
-        phase = one.imag + at_unity.imag * f_unity - mid.imag
+        phase = least.imag - at_margin.imag * least.real / at_margin.real
         # the frequency of the half turn moves too, and |H| is read off there
-        turned_hz = -(turned.imag - mid.imag) / at_half_turn.imag
+        turned_hz = -turned.imag / at_half_turn.imag
         edge_hz = -(edge.real - mid.real) / at_edge.real
         return UnityMove(
             f_unity=float(f_unity),
             phase_margin_deg=float(np.degrees(phase)),
             gain_margin_db=(
-                None if unity.gain_margin_at_hz is None else float(-DB * (turned.real + at_half_turn.real * turned_hz))
+                None
+                if unity.gain_margin_at_hz is None
+                else float(grows * DB * (turned.real + at_half_turn.real * turned_hz))
             ),
             gain_bandwidth=None if f_high_hz is None else float(mid.real + edge_hz),
         )
@@ -139,6 +143,14 @@ def unity_moves(network: Network, midband: MidBand, unity: Unity, f_high_hz: flo
         parts={name: move(changed) for name, changed in found.parts.items()},
         nodes={name: move(changed) for name, changed in found.nodes.items()},
     )
+
+
+def _may_fall(unity: Unity) -> bool:
+    """Whether the gain margin is one by which the gain may fall, or by which it must rise."""
+    if unity.gain_margin_db is None:
+        return False
+    turn = next(one for one in unity.half_turns if one.hz == unity.gain_margin_at_hz)
+    return turn.below_db * unity.gain_margin_db < 0.0
 
 
 def unity_identities(network: Network, moves: UnityMoves) -> tuple[Identity, ...]:
@@ -188,12 +200,14 @@ def follow_unity(changed: Network, midband: MidBand, unity: Unity) -> Followed |
     rise, it is searched for. midband, unity: of the unchanged network.
     Raises NetworkError where the changed network has no unique solution.
     """
-    reference = at_same_frequency(changed, midband)
-    hz = follow_level(changed, 1.0, np.array([unity.hz]))
-    if hz is not None:
+    reference = in_changed(changed, midband)
+    alone = not unity.further_hz and len(unity.half_turns) < 2
+    hz = follow_level(changed, 1.0, np.array([unity.hz])) if alone else None
+    offset = polarity_offset_deg(reference.gain)
+    if hz is not None and unity.phase_margin_deg is not None and offset is not None:
         at = solve(changed, on_axis(hz))
         if log_slope(changed, at)[0].real < 0.0:
-            margin = HALF_TURN_DEG + float(np.angle(at.response[0] / reference.gain, deg=True))
+            margin = HALF_TURN_DEG + float(np.angle(at.response[0] * polarity(reference.gain), deg=True))
             turns = 360.0 * round((unity.phase_margin_deg - margin) / 360.0)
             return Followed(float(hz[0]), margin + turns)
     found = find_unity(changed, reference)
