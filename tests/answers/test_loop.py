@@ -202,7 +202,9 @@ def test_an_operational_amplifier_is_shown_by_itself_and_with_its_noise_gain(eng
     assert facts.noise_gain == pytest.approx(1.0 + 6.8 / 12.0, rel=0.02)
     assert own.gain_bandwidth_hz is not None
     assert facts.noise_gain is not None
-    assert facts.noise_gain_edge_hz == pytest.approx(own.gain_bandwidth_hz / facts.noise_gain, rel=1e-12)
+    # the filter's capacitor lifts the noise gain near 8 kHz and makes A∞ fall: no gain-bandwidth over noise gain
+    assert facts.noise_gain_edge_hz is None
+    assert "the noise gain is not flat" in facts.not_f_high
     estimates = {one.method: one.difference for one in facts.estimates}
     assert abs(estimates["ideal gain alone"] or 1.0) < 0.001
     assert "elements around the amplifier set f_H" in facts.why[0]

@@ -16,7 +16,7 @@ from msgspec.structs import replace
 from tauledger.answers.answer import Subject, restore
 from tauledger.answers.double_injection import injected_ratio
 from tauledger.answers.loop_places import Place, closing_source, find_places, input_source, named_place
-from tauledger.answers.macromodel import amplifier, noise_gain
+from tauledger.answers.macromodel import amplifier, noise_gain, where_noise_gain_tells
 from tauledger.compose.setting import unit_of
 from tauledger.errors import NetworkError
 from tauledger.hand.feedback import hand_loop
@@ -30,9 +30,11 @@ from tauledger.network.loop_shape import (
     loop_grid,
     loop_shape,
     margins_near,
+    opposes,
+    single_frequency,
     turn_near,
 )
-from tauledger.network.return_ratio import Opening, asymptotic, checked, return_ratio
+from tauledger.network.return_ratio import Opening, asymptotic, checked, phase_of_delays, return_ratio
 from tauledger.network.solve import Real, on_axis, response
 from tauledger.network.spectrum import pole_frequencies
 from tauledger.numbers import Numbers
@@ -53,7 +55,12 @@ CHECKED_AT = np.array([0.1, 1.0, 10.0])
 CURVE_POINTS = 240
 WORTH_TELLING = 0.02
 OPEN_BELOW = 1e4
-FAR_BELOW = 1e3
+NO_LOOP = 1e-9
+REAL_DEG = 179.0
+# A phase that is not told from that of one pole.
+QUARTER_TURN_DEG, FEW_DEG = 0.5, 2.0
+# T by hand and T at the wire are the same loop, or one of them counts others too.
+SAME_LOOP = 0.1
 COARSE = 4
 # An edge by hand that is off by more than this factor misses what makes it, and is none.
 NO_ESTIMATE = 3.0
@@ -113,6 +120,7 @@ def _loop(found: Review, subject: Subject, place: Place, *, alone: bool) -> tupl
         return_ratio_real=t.real,
         return_ratio_imag=t.imag,
         return_ratio_simulated=None if simulated.ratio is None else abs(simulated.ratio),
+        return_ratio_simulated_deg=None if simulated.ratio is None else float(np.angle(simulated.ratio, deg=True)),
         crossover_hz=crossover.hz if crossover else None,
         phase_margin_deg=crossover.phase_margin_deg if crossover else None,
         crossover_simulated_hz=simulated.crossing.hz if simulated.crossing else None,
@@ -121,17 +129,20 @@ def _loop(found: Review, subject: Subject, place: Place, *, alone: bool) -> tupl
         gain_margin_at_hz=turn.hz if turn else None,
         gain_margin_simulated_db=-simulated.turn.gain_db if simulated.turn else None,
         lower_crossover_hz=lower.hz if lower else None,
-        lower_phase_margin_deg=None if lower is None else 360.0 - lower.phase_margin_deg,
-        open_edge_hz=shape.f_high_hz,
+        lower_phase_margin_deg=None if lower is None else lower.phase_margin_deg,
+        open_edge_hz=shape.f_high_hz if shape.flat else None,
+        further_hz=tuple(one.hz for one in shape.above if one is not crossover),
+        flat=shape.flat,
         unit=unit_of(numbers),
     )
     facts = _with_gains(facts, numbers, place, at_hz)
     facts = _with_hand(facts, subject, place)
-    facts = _with_noise_gain(facts, place, at_hz)
     several = place.found and not alone
-    if not several and (place.found or place.amplifier is not None or opening.kind == "wire"):
+    facts = _with_noise_gain(facts, place, whole=not several)
+    tells = place.found or place.amplifier is not None or opening.kind == "wire"
+    if not several and tells and abs(t) > NO_LOOP:
         facts = _with_estimates(facts, found, numbers, place, shape)
-    return replace(facts, says=_says(facts, place)), _curve(place, shape)
+    return replace(facts, says=_says(facts, place, shape)), _curve(place, shape)
 
 
 def _reference(numbers: Numbers, opening: Opening, lowest_hz: float) -> float:
@@ -152,18 +163,24 @@ def _simulate(subject: Subject, place: Place, shape: LoopShape) -> _Simulated:
     if circuit is None or engine is None or place.cut is None:
         return _Simulated()
     crossover, turn = shape.crossover, shape.gain_margin
-    # ngspice has no AC at DC: far below the edge of T it is what it is there
-    groups = [np.array([shape.at_hz or (shape.f_high_hz or float(shape.frequency_hz[0]) * FAR_BELOW) / FAR_BELOW])]
+    opening = place.opening
+    # ngspice has no AC at DC: far below all that moves T it is what it is there
+    reference = shape.at_hz or single_frequency(
+        lambda hz: return_ratio(opening, on_axis(hz)), shape.at_reference, float(shape.frequency_hz[0])
+    )
+    groups = [np.array([] if reference is None else [reference])]
     groups += [one.hz * AROUND for one in (crossover, turn) if one is not None]
     hz = np.concatenate(groups)
+    if not len(hz):
+        return _Simulated()
     order = np.argsort(hz)
     ratio = np.empty(len(hz), dtype=complex)
     ratio[order] = injected_ratio(circuit, place.cut, engine, hz[order])
-    rest = ratio[1:].reshape(-1, len(AROUND))
-    found = _Simulated(complex(ratio[0]))
+    rest = ratio[len(groups[0]) :].reshape(-1, len(AROUND))
+    found = _Simulated() if reference is None else _Simulated(complex(ratio[0]))
     k = 0
     if crossover is not None:
-        found = replace(found, crossing=margins_near(rest[0], groups[1], crossover.phase_margin_deg - 180.0))
+        found = replace(found, crossing=margins_near(rest[0], groups[1], crossover))
         k = 1
     if turn is not None:
         found = replace(found, turn=turn_near(rest[k], groups[1 + k]))
@@ -186,6 +203,7 @@ def _with_gains(facts: LoopFacts, numbers: Numbers, place: Place, at_hz: float) 
         facts,
         closing_source=source,
         closing_return_ratio=t.real,
+        closing_return_ratio_imag=t.imag,
         ideal_gain=ideal.real if math.isfinite(abs(ideal)) else None,
         feedthrough=through.real,
         closed_gain=complex(at.closed[0]).real,
@@ -216,12 +234,12 @@ def _with_hand(facts: LoopFacts, subject: Subject, place: Place) -> LoopFacts:
     return replace(facts, hand_open_edge_hz=float(opened.edge_hz), hand_open_nodes=nodes)
 
 
-def _with_noise_gain(facts: LoopFacts, place: Place, at_hz: float) -> LoopFacts:
-    """Add what the amplifier is by itself, its noise gain, and the f_H that follows from the two."""
+def _with_noise_gain(facts: LoopFacts, place: Place, *, whole: bool) -> LoopFacts:
+    """Add what the amplifier is by itself, its noise gain, and the f_H that follows from the two where it does."""
     one = place.amplifier
     if one is None:
         return facts
-    ratio = noise_gain(place.opening, one, at_hz)
+    ratio = noise_gain(place.opening, one, facts.at_hz)
     if one.output in one.control:
         # a follower: its output cannot be told from its input, so that it is taken as it stands
         gain = abs(complex(facts.return_ratio_real, facts.return_ratio_imag)) * (ratio or 1.0)
@@ -229,8 +247,11 @@ def _with_noise_gain(facts: LoopFacts, place: Place, at_hz: float) -> LoopFacts:
         own = AmplifierFacts(one.name, gain, edge, None if edge is None else gain * edge, None, loaded=True)
     else:
         own = amplifier(one)
-    predicted = own.gain_bandwidth_hz / ratio if own.gain_bandwidth_hz and ratio else None
-    return replace(facts, noise_gain=ratio, amplifier=own, noise_gain_edge_hz=predicted)
+    facts = replace(facts, noise_gain=ratio, amplifier=own)
+    if not own.gain_bandwidth_hz or not ratio or facts.crossover_hz is None:
+        return facts
+    told = where_noise_gain_tells(place.opening, one, own, (facts.at_hz, facts.crossover_hz), whole=whole)
+    return replace(facts, noise_gain_edge_hz=None if told else own.gain_bandwidth_hz / ratio, not_f_high=told)
 
 
 def _with_estimates(facts: LoopFacts, found: Review, numbers: Numbers, place: Place, shape: LoopShape) -> LoopFacts:
@@ -245,7 +266,7 @@ def _with_estimates(facts: LoopFacts, found: Review, numbers: Numbers, place: Pl
         ratio = return_ratio(opening, on_axis(hz))
         return np.asarray(np.abs(ratio / (1.0 + ratio)), dtype=np.float64)
 
-    first = shape.f_high_hz * (1.0 + t)
+    first = shape.f_high_hz * (1.0 + t) if shape.flat else None
     loop = edge_above(
         closed,
         shape.frequency_hz,
@@ -265,23 +286,44 @@ def _with_estimates(facts: LoopFacts, found: Review, numbers: Numbers, place: Pl
     steps: list[tuple[str, float | None]] = []
     if facts.noise_gain_edge_hz is not None:
         steps.append(("gain-bandwidth over noise gain", facts.noise_gain_edge_hz))
-    if facts.hand_open_edge_hz is not None and facts.hand_return_ratio is not None:
+    if facts.hand_open_edge_hz is not None and facts.hand_return_ratio is not None and _one_loop(facts):
         steps.append(("by hand, edge of T times 1 + T", facts.hand_open_edge_hz * (1.0 + facts.hand_return_ratio)))
-    steps += [("edge of T times 1 + T", first), ("loop alone", loop)]
+    if first is not None:
+        steps.append(("edge of T times 1 + T", first))
+    steps.append(("loop alone", loop))
     if ideal is not None:
         steps.append(("ideal gain alone", ideal))
     steps.append(("closed loop, exact", high.exact_hz))
     estimates = tuple(LoopEstimate(name, hz, None if hz is None else hz / reference - 1.0) for name, hz in steps)
-    return replace(facts, estimates=estimates, why=_why(facts, first, loop, ideal, high.exact_hz))
+    return replace(facts, estimates=estimates, why=_why(facts, place, shape, (first, loop, ideal, high.exact_hz)))
 
 
-def _says(facts: LoopFacts, place: Place) -> tuple[str, ...]:
+def _one_loop(facts: LoopFacts) -> bool:
+    """Whether T₀ by hand is that of the place itself, and not of all loops through one transistor."""
+    exact, own = facts.closing_return_ratio, facts.return_ratio_real
+    return facts.kind == "source" or (exact is not None and abs(exact - own) <= SAME_LOOP * abs(own))
+
+
+def _says(facts: LoopFacts, place: Place, shape: LoopShape) -> tuple[str, ...]:
     """Say what this T is where a reader may take it for another one."""
     told = []
-    if facts.return_ratio_real < 0.0:
-        told.append("T is negative at mid-band: what comes back helps, positive feedback")
+    t = shape.at_reference
+    if facts.kind == "wire" and abs(t) <= NO_LOOP:
+        return ("no loop through this wire: nothing comes back but rounding",)
+    if t and not opposes(t):
+        angle = float(np.angle(t, deg=True))
+        size = "negative" if abs(angle) > REAL_DEG else f"at {angle:.0f}°"
+        told.append(f"T is {size} at mid-band: what comes back helps, positive feedback")
     if facts.crossover_hz is None:
         told.append("|T| does not fall through 1 above mid-band")
+    if facts.further_hz:
+        several = ", ".join(
+            f"{engineering(one.hz, 'Hz', 4)} ({'falls' if one.falling else 'rises'}, {one.phase_margin_deg:.1f}°)"
+            for one in shape.above
+        )
+        told.append(f"|T| = 1 several times: {several}; the fall with the least margin stands above")
+    if not facts.flat and t:
+        told.append("T is not flat between mid-band and its edge: edge of T · (1 + T) does not hold, and is not given")
     if facts.kind == "admittance":
         told.append(
             "the return ratio of an admittance: A0 is the gain with the element taken out, A∞ with a short in its "
@@ -297,20 +339,20 @@ def _says(facts: LoopFacts, place: Place) -> tuple[str, ...]:
     return tuple(told)
 
 
-def _why(facts: LoopFacts, first: float, loop: float | None, ideal: float | None, exact: float) -> tuple[str, ...]:
+def _why(
+    facts: LoopFacts, place: Place, shape: LoopShape, steps: tuple[float | None, float | None, float | None, float]
+) -> tuple[str, ...]:
     """Say what each step from one pole to the closed loop rests on, where it moves by more than 2 %."""
+    first, loop, ideal, exact = steps
     told = []
-    if ideal is not None and ideal < 0.5 * first:
+    nearer = ideal is not None and (loop is None or abs(ideal / exact - 1.0) < abs(loop / exact - 1.0))
+    if ideal is not None and nearer and ideal < 0.5 * (first or facts.crossover_hz or math.inf):
         return ("elements around the amplifier set f_H: with T → ∞ the gain would fall there by itself",)
-    hand = facts.noise_gain_edge_hz
-    if hand is not None and abs(first / hand - 1.0) > WORTH_TELLING:
-        told.append(
-            f"what loads the amplifier on the board leaves {100.0 * first / hand:.0f} % of its gain-bandwidth product"
-        )
-    if loop is not None and abs(loop / first - 1.0) > WORTH_TELLING and facts.phase_margin_deg is not None:
-        lag = facts.phase_margin_deg - 180.0
-        more = "a second pole is near" if lag < -90.0 else "a zero lifts it"
-        told.append(f"T has not one pole alone: {more}, where |T| = 1 its phase is {lag:.0f}° instead of -90°")
+    left = _bandwidth_left(facts)
+    if left is not None and left < 1.0 - WORTH_TELLING:
+        told.append(f"what loads the amplifier on the board leaves {100.0 * left:.0f} % of its gain-bandwidth product")
+    if loop is not None and (first is None or abs(loop / first - 1.0) > WORTH_TELLING):
+        told += _not_one_pole(place, shape)
     if loop is not None and abs(exact / loop - 1.0) > WORTH_TELLING:
         if ideal is not None and ideal < 4.0 * exact:
             told.append(
@@ -320,6 +362,30 @@ def _why(facts: LoopFacts, first: float, loop: float | None, ideal: float | None
         else:
             told.append("what the loop does not hold adds poles and zeros of its own: source, load, feedthrough")
     return tuple(told)
+
+
+def _bandwidth_left(facts: LoopFacts) -> float | None:
+    """Give what the board leaves of the gain of a one-pole amplifier at |T| = 1: noise gain over its own gain there."""
+    own, hz = facts.amplifier, facts.crossover_hz
+    if facts.noise_gain_edge_hz is None or own is None or hz is None or facts.noise_gain is None or own.loaded:
+        return None
+    if own.open_loop_gain is None or own.first_pole_hz is None:
+        return None
+    return facts.noise_gain * math.hypot(1.0, hz / own.first_pole_hz) / abs(own.open_loop_gain)
+
+
+def _not_one_pole(place: Place, shape: LoopShape) -> list[str]:
+    """Say what makes the phase at |T| = 1 another one than that of one pole: a zero, the delay of a line, a pole."""
+    crossover = shape.crossover
+    if crossover is None or abs(crossover.angle_deg + 90.0) < (QUARTER_TURN_DEG if shape.flat else FEW_DEG):
+        return []
+    lag = crossover.angle_deg
+    if lag > -90.0:
+        more = "a zero lifts it"
+    else:
+        late = -phase_of_delays(place.opening, crossover.hz)
+        more = "a line delays it" if late > 0.5 * (-90.0 - lag) else "a second pole is near"
+    return [f"T has not one pole alone: {more}, where |T| = 1 its phase is {lag:.0f}° instead of -90°"]
 
 
 def _curve(place: Place, shape: LoopShape) -> LoopCurve:

@@ -24,6 +24,7 @@ from tauledger.hand.equivalent import joined_nodes
 from tauledger.hand.feedback import LOOP_ABOVE, FoundLoop, find_loop
 from tauledger.network.admittance import admittance
 from tauledger.network.assemble import Network
+from tauledger.network.loop_shape import signed_size
 from tauledger.network.return_ratio import (
     BILATERAL,
     CONTROLLED,
@@ -32,6 +33,7 @@ from tauledger.network.return_ratio import (
     at_admittance,
     at_source,
     at_wire,
+    leaves_there,
     return_ratio,
 )
 from tauledger.network.solve import on_axis, solve
@@ -215,9 +217,12 @@ def _into_terminal(numbers: Numbers, device: Device, terminal: str) -> Place:
         known = ", ".join(f"{device.name}.{t.word}" for t in device.terminals if t.outer != GROUND)
         raise InputError(f"--loop {device.name}.{terminal}: no such terminal", f"wires there: {known}")
     at = words[0]
-    where = f"wire into the {at.word} of {device.name} ({at.outer})"
-    opening = at_wire(numbers.network, device.name, at.outer)
     cut = None if numbers.circuit is None else cut_into(numbers.circuit, device.name, at.outer)
+    outward = leaves_there(numbers.network, device.name, at.outer, complex(on_axis(_reference(numbers))[0]))
+    if outward and cut is not None:
+        cut = replace(cut, source=True)
+    where = f"wire {'out of' if outward else 'into'} the {at.word} of {device.name} ({at.outer})"
+    opening = at_wire(numbers.network, device.name, at.outer, outward=outward)
     return Place(f"{device.name}.{at.word}", where, opening, cut)
 
 
@@ -303,7 +308,7 @@ def _loops_of_instances(numbers: Numbers, instances: list[Instance]) -> list[Pla
     for instance in instances:
         try:
             place = _at_instance(numbers, network, instance)
-            t = complex(return_ratio(place.opening, on_axis(_reference(numbers)))[0]).real
+            t = signed_size(complex(return_ratio(place.opening, on_axis(_reference(numbers)))[0]))
         except (InputError, NetworkError):
             continue
         if t > LOOP_ABOVE:

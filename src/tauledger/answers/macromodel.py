@@ -10,11 +10,14 @@ from tauledger.devices.parts import voltage_source
 from tauledger.errors import NetworkError
 from tauledger.network.assemble import Network
 from tauledger.network.poles import find_poles
-from tauledger.network.return_ratio import Opening, ratio_to
+from tauledger.network.return_ratio import Opening, asymptotic, ratio_to
 from tauledger.network.solve import on_axis, response
 from tauledger.record import AmplifierFacts
 
 DRIVE = "loop'in"
+FLAT = 1.1
+LOOKED_AT = 25
+FAR_BELOW = 1e7
 
 
 def amplifier(one: Amplifier) -> AmplifierFacts:
@@ -56,3 +59,27 @@ def noise_gain(opening: Opening, one: Amplifier, at_hz: float) -> float | None:
         return None
     ratio = complex(ratio_to(opening, one.output, GROUND, on_axis(at_hz))[0])
     return abs(ratio) if np.isfinite(ratio) else None
+
+
+def where_noise_gain_tells(
+    opening: Opening, one: Amplifier, own: AmplifierFacts, between_hz: tuple[float, float], *, whole: bool
+) -> str:
+    """Say why gain-bandwidth over noise gain is not f_H; empty where it is.
+
+    It is where the amplifier has one pole up to |T| = 1, and noise gain and ideal gain are flat up to there.
+    between_hz: mid-band and crossover. whole: the response is that of this amplifier alone. Raises NetworkError
+    where the reference has no unique solution.
+    """
+    low, high = between_hz
+    if own.second_pole_hz is not None and own.second_pole_hz < high:
+        return "the amplifier has a second pole below |T| = 1"
+    hz = np.geomspace(max(low, high / FAR_BELOW), max(high, low), LOOKED_AT)
+    size = np.abs(ratio_to(opening, one.output, GROUND, on_axis(hz)))
+    if not np.max(size) < FLAT * np.min(size):
+        return f"the noise gain is not flat, up to |T| = 1 it runs from {np.min(size):.4g} to {np.max(size):.4g}"
+    if not whole:
+        return ""
+    ideal = np.abs(asymptotic(opening, on_axis(hz)).ideal)
+    if not np.max(ideal) < np.sqrt(2.0) * np.min(ideal):
+        return "the ideal gain A∞ is not flat up to |T| = 1"
+    return ""

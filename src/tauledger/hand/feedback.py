@@ -32,6 +32,7 @@ from tauledger.hand.looking_in import looking_in
 from tauledger.hand.stages import stage_rows
 from tauledger.network.assemble import Network, assemble
 from tauledger.network.bands import GAIN_TOLERANCE, Bands, merged_nodes, upper_network
+from tauledger.network.loop_shape import signed_size
 from tauledger.network.midband import MidBand
 from tauledger.network.reactances import REACTIVE
 from tauledger.network.return_ratio import CONTROLLED, VOLTAGE_KINDS, at_source, at_wire, return_ratio
@@ -92,17 +93,18 @@ def find_loop(
         return None
     place = _places(nodes, stages)
     wires = sorted(_wires(devices, place), key=lambda wire: wire[0])
-    loops = [wire for wire in wires if _wire_ratio(network, wire[1], wire[2], at_hz) > LOOP_ABOVE]
+    loops = [wire for wire in wires if signed_size(_wire_ratio(network, wire[1], wire[2], at_hz)) > LOOP_ABOVE]
     for where, owner, node, word in loops:
         path = tuple(
             stage.node
             for k, stage in enumerate(stages)
-            if k > where and _wire_ratio(network, owner, node, at_hz, held=stage.node) < DIES
+            if k > where and _wire_ratio(network, owner, node, at_hz, held=stage.node).real < DIES
         )
         if not path:
             continue
         rest = _without_gm(network, {owner})
-        if any(_wire_ratio(rest, wire[1], wire[2], at_hz) > LOOP_ABOVE for wire in loops if wire[1] != owner):
+        others = (_wire_ratio(rest, wire[1], wire[2], at_hz) for wire in loops if wire[1] != owner)
+        if any(signed_size(t) > LOOP_ABOVE for t in others):
             return None
         device = _last_inverting(network, devices, stages, (owner, node), at_hz)
         return None if not device else FoundLoop(owner, node, word, device, path)
@@ -208,15 +210,15 @@ def _wires(devices: tuple[Device, ...], place: Mapping[str, int]) -> Iterator[tu
                 yield where, device.name, end.outer, end.word
 
 
-def _wire_ratio(network: Network, owner: str, node: str, at_hz: float, held: str = "") -> float:
-    """Give Re T of a wire at mid-band, with a node held at ground where one is named; 0 where there is no such wire."""
+def _wire_ratio(network: Network, owner: str, node: str, at_hz: float, held: str = "") -> complex:
+    """Give T of a wire at mid-band, with a node held at ground where one is named; 0 where there is no such wire."""
     try:
         if held:
             grounded = (*network.parts, voltage_source("loop'held", held, GROUND))
             network = assemble(grounded, network.port, network.amplitudes)
-        return float(return_ratio(at_wire(network, owner, node), on_axis(at_hz))[0].real)
+        return complex(return_ratio(at_wire(network, owner, node), on_axis(at_hz))[0])
     except (NetworkError, InputError):
-        return 0.0
+        return 0j
 
 
 def _without_gm(network: Network, owners: Collection[str]) -> Network:
@@ -239,7 +241,7 @@ def _last_inverting(
     for stage in reversed(stages):
         if stage.owner in there and (stage.gain_exact or 0.0) < 0.0:
             dead = _without_gm(network, {stage.owner})
-            if abs(_wire_ratio(dead, *wire, at_hz)) < DIES * whole:
+            if abs(_wire_ratio(dead, *wire, at_hz)) < DIES * abs(whole):
                 return stage.owner
     return ""
 
@@ -254,7 +256,7 @@ def _at_lone_source(network: Network, devices: tuple[Device, ...], at_hz: float)
     for owner in owners:
         parts = [part for part in network.parts if part.owner == owner and part.kind in CONTROLLED]
         try:
-            t = complex(return_ratio(at_source(network, parts), on_axis(at_hz))[0]).real
+            t = signed_size(complex(return_ratio(at_source(network, parts), on_axis(at_hz))[0]))
         except (NetworkError, InputError):
             continue
         if np.isfinite(t) and t > LOOP_ABOVE:

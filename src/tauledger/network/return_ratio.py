@@ -38,6 +38,7 @@ CONTROLLED = (*CURRENT_KINDS, *VOLTAGE_KINDS)
 BILATERAL = ("conductance", "capacitance", "inductance")
 SERIES = "loop'e"
 IDENTITY = 1e-6
+DELAY_STEP = 1e-3
 # What comes back is lost in the rounding of the largest voltage or current that the source makes.
 ROUNDING = 1e-14
 # A determinant of badly scaled rows has lost more than a solution has.
@@ -135,9 +136,11 @@ def at_admittance(network: Network, part: Part) -> Opening:
     return Opening("admittance", reference, network, across, (Term(value * across, power=power),))
 
 
-def at_wire(network: Network, owner: str, node: str) -> Opening:
+def at_wire(network: Network, owner: str, node: str, *, outward: bool = False) -> Opening:
     """Cut the wire from a node into all that one element has there, and bridge it with an AC short.
 
+    outward: the signal comes out of the element there, so that its side is the near one. T of the two directions
+    differs unless all that passes the wire backwards is nothing.
     Raises InputError where that element has nothing there, or the node is ground.
     """
     mine = [part for part in network.parts if fold(part.owner.partition("'")[0]) == fold(owner) and node in part.nodes]
@@ -149,8 +152,42 @@ def at_wire(network: Network, owner: str, node: str) -> Opening:
         replace(part, nodes=tuple(far if at == node else at for at in part.nodes)) if part.name in cut else part
         for part in network.parts
     )
-    closed = assemble((*parts, voltage_source(SERIES, far, node)), network.port, network.amplitudes)
-    return Opening("wire", closed, network, np.zeros(closed.size), far=far)
+    ends = (node, far) if outward else (far, node)
+    closed = assemble((*parts, voltage_source(SERIES, *ends)), network.port, network.amplitudes)
+    return Opening("wire", closed, network, np.zeros(closed.size), far=ends[0])
+
+
+def leaves_there(network: Network, owner: str, node: str, s: complex) -> bool:
+    """Whether the signal of a loop comes out of an element at a node: more passes that way round than the other.
+
+    With both ends of the cut wire held, each moved in turn: the current at the node by the terminal against the current
+    into the terminal by the node. Raises NetworkError where the network has no unique solution, InputError as at_wire.
+    """
+    far = at_wire(network, owner, node).far
+    cut = tuple(part for part in at_wire(network, owner, node).network.parts if part.owner != SERIES)
+    ends = (voltage_source(f"{SERIES}1", far, GROUND), voltage_source(f"{SERIES}2", node, GROUND))
+    held = assemble((*cut, *ends), network.port, network.amplitudes)
+    rows = [held.branch(one.owner) for one in ends]
+    answer = _driven(held, np.eye(held.size)[rows], np.array([s]))[0]
+    return bool(abs(answer[1, rows[0]]) > abs(answer[0, rows[1]]))
+
+
+def phase_of_delays(opening: Opening, hz: float) -> float:
+    """Give the degrees of arg T at a frequency in Hz that the delays of lines make: d arg T/d ln(delay), all together.
+
+    Raises NetworkError where the network has no unique solution.
+    """
+    network = opening.network
+    if not network.lines:
+        return 0.0
+    longer = tuple(
+        replace(part, value=part.value * (1.0 + DELAY_STEP)) if part.kind == "line" and part.label == "delay" else part
+        for part in network.parts
+    )
+    late = replace(opening, network=assemble(longer, network.port, network.amplitudes))
+    s = np.array([2j * np.pi * hz])
+    moved = return_ratio(late, s) / return_ratio(opening, s)
+    return float(np.angle(moved[0], deg=True)) / DELAY_STEP
 
 
 def return_ratio(opening: Opening, s: Complex) -> Complex:

@@ -49,11 +49,13 @@ class LoopFacts(Struct, frozen=True):
 
     loop: as named ("M6", "Q1.base"). kind: source, admittance (of a bilateral element, against none) or wire (double
     injection). where: in words. found: not asked for. through: signal nodes that it passes. return_ratio_*: T at at_hz
-    (mid-band), positive for negative feedback; *_simulated: by double injection in ngspice, None where no wire carries
-    that T alone. crossover: the last |T| = 1 above mid-band; lower_crossover below it. open_edge_hz: −3 dB of T.
-    closing_source: for which H = ideal_gain·T/(1 + T) + feedthrough/(1 + T) = closed_gain at at_hz, with
+    (mid-band), positive for negative feedback; *_simulated (size), *_deg (angle): by double injection in ngspice, None
+    where no wire carries that T alone. crossover: |T| = 1 above mid-band; lower_crossover below it. open_edge_hz: −3 dB
+    of T. closing_source: for which H = ideal_gain·T/(1 + T) + feedthrough/(1 + T) = closed_gain at at_hz, with
     closing_return_ratio for T; identity_error: largest relative error of that against the network. noise_gain: 1/β of
-    an amplifier, noise_gain_edge_hz its gain-bandwidth product over that. hand_return_ratio: hand_siemens·Π hand of
+    an amplifier, noise_gain_edge_hz its gain-bandwidth product over that, where that is f_H: not_f_high says why not.
+    further_hz: |T| = 1 above mid-band elsewhere; crossover_hz is then the fall with the least margin. flat: T is in
+    phase at at_hz and does not rise before open_edge_hz, which is None else. hand_return_ratio: hand_siemens·Π hand of
     hand_stages. hand_open_edge_hz: 1/(2π·Σ R·C) of the opened loop, hand_open_nodes those that take 1 % of it or more.
     """
 
@@ -96,6 +98,11 @@ class LoopFacts(Struct, frozen=True):
     estimates: tuple[LoopEstimate, ...] = ()
     why: tuple[str, ...] = ()
     says: tuple[str, ...] = ()
+    return_ratio_simulated_deg: float | None = None
+    closing_return_ratio_imag: float | None = None
+    further_hz: tuple[float, ...] = ()
+    flat: bool = True
+    not_f_high: str = ""
 
 
 class LoopCurve(Struct, frozen=True):

@@ -25,8 +25,9 @@ def _loop(facts: LoopFacts) -> list[Block]:
     blocks: list[Block] = [Table("lrr", head, rows), Prose(title(facts), lead="  ")]
     blocks += _sentences(facts, after=False)
     if facts.estimates:
-        edge = number(facts.open_edge_hz, "Hz")
-        head = (f"  f_H from the loop, whose T has its edge at {edge}", "f_H", "")
+        edge = facts.open_edge_hz
+        whose = "" if edge is None else f", whose T has its edge at {number(edge, 'Hz')}"
+        head = (f"  f_H from the loop{whose}", "f_H", "")
         blocks.append(Table("lrr", head, tuple(Row(cells) for cells in estimate_rows(facts))))
     blocks += _sentences(facts, after=True)
     return blocks

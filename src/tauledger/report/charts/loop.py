@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import math
+from itertools import pairwise
 from typing import TYPE_CHECKING
 
 from tauledger.record import LoopCurve, LoopFacts, Review
@@ -38,7 +40,7 @@ def loop_chart(review: Review, *, narrow: bool = False) -> str:
         for axes in (upper, lower):
             axes.grid(axis="both")
             axes.set_axisbelow(True)
-        _mark(upper, lower, facts)
+        _mark(upper, lower, facts, curve)
         return to_svg(figure, key="loop", title=_title(facts), narrow=narrow)
 
 
@@ -48,13 +50,14 @@ def _phase_range(curve: LoopCurve) -> tuple[float, float]:
     return max(low, -270.0) - 15.0 if low < -150.0 else -195.0, min(high, 270.0) + 15.0
 
 
-def _mark(upper: Axes, lower: Axes, facts: LoopFacts) -> None:
+def _mark(upper: Axes, lower: Axes, facts: LoopFacts, curve: LoopCurve) -> None:
     """Mark where |T| = 1 and where the phase is −180°, with the margins."""
     if facts.crossover_hz is not None and facts.phase_margin_deg is not None:
         for axes in (upper, lower):
             axes.axvline(facts.crossover_hz, color=light("muted"), linestyle=":", linewidth=1.0)
         upper.plot([facts.crossover_hz], [0.0], marker="o", color=light("ink"), markersize=4)
-        lower.plot([facts.crossover_hz], [facts.phase_margin_deg - 180.0], marker="o", color=light("ink"), markersize=4)
+        phase = _phase_there(curve, facts.crossover_hz)
+        lower.plot([facts.crossover_hz], [phase], marker="o", color=light("ink"), markersize=4)
         upper.annotate(
             f" {number(facts.crossover_hz, 'Hz')}, {facts.phase_margin_deg:.0f}° margin",
             (facts.crossover_hz, 0.0),
@@ -68,6 +71,15 @@ def _mark(upper: Axes, lower: Axes, facts: LoopFacts) -> None:
         first, last = upper.get_xlim()
         if first < facts.gain_margin_at_hz < last:
             upper.plot([facts.gain_margin_at_hz], [-facts.gain_margin_db], marker="s", color=light("ink"), markersize=4)
+
+
+def _phase_there(curve: LoopCurve, hz: float) -> float:
+    """Give the unwrapped phase of the curve at a frequency, straight in log f between its points."""
+    points = list(zip(curve.frequency_hz, curve.phase_deg, strict=True))
+    for (low, first), (high, last) in pairwise(points):
+        if low <= hz <= high:
+            return first + (last - first) * math.log(hz / low) / math.log(high / low)
+    return points[0][1] if hz < points[0][0] else points[-1][1]
 
 
 def _late(axes: Axes, hz: float) -> bool:

@@ -2,11 +2,12 @@
 
 from __future__ import annotations
 
+import cmath
 import math
 
 from tauledger.record import LoopFacts, LoopStageFacts
 from tauledger.report.tables.grid import Column, Grid, GridRow, said
-from tauledger.report.wording import NO_NUMBER, move, number
+from tauledger.report.wording import NO_NUMBER, degrees, move, number
 
 METHODS = {
     "gain-bandwidth over noise gain": "by hand, gain-bandwidth / noise gain",
@@ -18,6 +19,8 @@ METHODS = {
 }
 TIMES = 2.0
 SAME = 1e-3
+OTHER_LOOPS = 0.1
+REAL_DEG = 1.0
 
 
 def place(facts: LoopFacts) -> str:
@@ -35,27 +38,24 @@ def title(facts: LoopFacts) -> str:
 def loop_rows(facts: LoopFacts) -> tuple[tuple[str, str, str], ...]:
     """Give name, exact and simulated of T at mid-band, its crossovers and margins."""
     at = "DC" if facts.at_hz == 0.0 else number(facts.at_hz, "Hz")
-    size = math.hypot(facts.return_ratio_real, facts.return_ratio_imag)
-    sign = "-" if facts.return_ratio_real < 0.0 else ""
-    decibel = f" ({20.0 * math.log10(size):.1f} dB)" if size > 0.0 else ""
-    ratio = facts.return_ratio_simulated
-    rows = [
-        (
-            f"return ratio T at {at}",
-            f"{sign}{_plain(size)}{decibel}",
-            NO_NUMBER if ratio is None else f"{sign}{_plain(ratio)}",
-        )
-    ]
+    t = complex(facts.return_ratio_real, facts.return_ratio_imag)
+    decibel = f" ({20.0 * math.log10(abs(t)):.1f} dB)" if t else ""
+    size, angle = facts.return_ratio_simulated, facts.return_ratio_simulated_deg
+    if size is None:
+        simulated = NO_NUMBER
+    else:
+        simulated = _ratio(t / abs(t) * size if t else size) if angle is None else _ratio(_turned(size, angle))
+    rows = [(f"return ratio T at {at}", f"{_ratio(t)}{decibel}", simulated)]
     if facts.crossover_hz is not None:
         both = (number(facts.crossover_hz, "Hz"), number(facts.crossover_simulated_hz, "Hz"))
         rows.append(("|T| = 1, crossover", *both))
-        rows.append(("phase margin", _degrees(facts.phase_margin_deg), _degrees(facts.phase_margin_simulated_deg)))
+        rows.append(("phase margin", degrees(facts.phase_margin_deg), degrees(facts.phase_margin_simulated_deg)))
     if facts.gain_margin_db is not None:
         name = f"gain margin, at {number(facts.gain_margin_at_hz, 'Hz')}"
         rows.append((name, _decibel(facts.gain_margin_db), _decibel(facts.gain_margin_simulated_db)))
     if facts.lower_crossover_hz is not None:
         rows.append(("|T| = 1 below mid-band", number(facts.lower_crossover_hz, "Hz"), ""))
-        rows.append(("phase margin there", _degrees(facts.lower_phase_margin_deg), ""))
+        rows.append(("phase margin there", degrees(facts.lower_phase_margin_deg), ""))
     return tuple(rows)
 
 
@@ -71,9 +71,10 @@ def closed_text(facts: LoopFacts) -> tuple[str, ...]:
         return (
             f"T is 0 there: {facts.closing_source} has no loop; of the gain, {closed}, feedthrough A0 is {through}",
         )
-    wire = math.hypot(facts.return_ratio_real, facts.return_ratio_imag)
-    own = abs(facts.closing_return_ratio - wire) > SAME * wire
-    other = f", T {_plain(facts.closing_return_ratio)} at {facts.closing_source}, its own resistances counted"
+    wire = complex(facts.return_ratio_real, facts.return_ratio_imag)
+    closing = complex(facts.closing_return_ratio, facts.closing_return_ratio_imag or 0.0)
+    own = abs(closing - wire) > SAME * abs(wire)
+    other = f", T {_ratio(closing, brackets=True)} at {facts.closing_source}, its own resistances counted"
     return (
         f"closed loop A∞·T/(1 + T) + A0/(1 + T) = {number(facts.closed_gain, facts.unit)} with the ideal gain A∞ "
         f"{number(facts.ideal_gain, facts.unit)}, feedthrough A0 {through}{other if own else ''}",
@@ -87,9 +88,12 @@ def hand_text(facts: LoopFacts) -> tuple[str, ...]:
     first, *others = facts.hand_stages
     device = facts.closing_source.removeprefix("gm of ")
     product = " · ".join((f"{number(abs(first.hand), 'Ω')} ({first.node})", *map(_factor, others)))
-    exact = facts.closing_return_ratio
+    t = complex(facts.closing_return_ratio or 0.0, facts.closing_return_ratio_imag or 0.0)
+    exact, own = math.copysign(abs(t), t.real), math.hypot(facts.return_ratio_real, facts.return_ratio_imag)
     off = "" if not exact else f" ({move(facts.hand_return_ratio / exact - 1.0)})"
     value = f"{_plain(facts.hand_return_ratio)}{off}"
+    if facts.kind == "wire" and exact and abs(abs(exact) - own) > OTHER_LOOPS * abs(exact):
+        value += f", of every loop through {device}: T there is {_plain(exact)}"
     return (f"T0 = gm of {device} {number(abs(facts.hand_siemens), 'S')} · {product} = {value}",)
 
 
@@ -130,7 +134,9 @@ def noise_text(facts: LoopFacts) -> tuple[str, ...]:
     if facts.noise_gain is None:
         return ()
     edge = facts.noise_gain_edge_hz
-    hand = "" if edge is None else f"; f_H = gain-bandwidth / noise gain = {number(edge, 'Hz')}"
+    hand = f"; {facts.not_f_high}: gain-bandwidth over it is not f_H" if facts.not_f_high else ""
+    if edge is not None:
+        hand = f"; f_H = gain-bandwidth / noise gain = {number(edge, 'Hz')}"
     return (f"noise gain 1/β {_plain(facts.noise_gain)}, its output over what comes back to its inputs{hand}",)
 
 
@@ -194,6 +200,18 @@ def _plain(value: float) -> str:
     return f"{float(f'{value:.4g}'):.0f}" if 1e4 <= abs(value) < 1e7 else f"{value:#.4g}".rstrip(".")
 
 
+def _ratio(t: complex, *, brackets: bool = False) -> str:
+    """Write T: with its sign where it is real, else with its angle."""
+    angle = math.degrees(cmath.phase(t))
+    if min(abs(angle), 180.0 - abs(angle)) < REAL_DEG:
+        return _plain(math.copysign(abs(t), t.real) if t else 0.0)
+    return f"{_plain(abs(t))} ({angle:.1f}°)" if brackets else f"{_plain(abs(t))} at {angle:.1f}°"
+
+
+def _turned(size: float, angle_deg: float) -> complex:
+    return cmath.rect(size, math.radians(angle_deg))
+
+
 def around_the_loop(facts: LoopFacts) -> str:
     """Say in a sentence what paper makes of f_H round the loop; nothing where it was not worked out."""
     by_hand = next((one for one in facts.estimates if METHODS.get(one.method, "").startswith("by hand")), None)
@@ -211,10 +229,6 @@ def around_the_loop(facts: LoopFacts) -> str:
 def _apart(difference: float | None) -> str:
     """Write how far an estimate is off: per cent, or how many times it is too high."""
     return f"{1.0 + difference:.3g} times" if difference is not None and difference >= TIMES else move(difference)
-
-
-def _degrees(value: float | None) -> str:
-    return NO_NUMBER if value is None else f"{value:.1f}°"
 
 
 def _decibel(value: float | None) -> str:
