@@ -14,7 +14,7 @@ from tauledger.network.assemble import Network
 from tauledger.network.bands import Bands, classify, find_midband
 from tauledger.network.constants import midband_inverse, open_constants
 from tauledger.network.edges import find_edges
-from tauledger.network.gain_setting import impedance, impedance_above, impedance_below
+from tauledger.network.gain_setting import impedance, impedance_above, impedance_below, parts_at
 from tauledger.network.identities import check, open_identities
 from tauledger.network.lower import short_constants
 from tauledger.network.midband import in_changed
@@ -174,3 +174,28 @@ def test_a_gain_that_an_inductor_sets_beside_a_capacitor_is_not_worked_by_hand()
     assert bands.class_of["L1"] == "short"
     assert not bands.sound
     assert review_network(network).nodes == ()
+
+
+def test_a_resonance_at_mid_band_parts_no_poles_and_nothing_is_worked_by_hand() -> None:
+    """10 µF and 4.83 µH ring at 22.9 kHz beside a divider of capacitors; two decades higher all is as ever."""
+    parts = [
+        voltage_source("VS", "s", "0", 1.0),
+        capacitance("CS", "s", "out", 1.2e-9),
+        capacitance("CW", "out", "0", 900e-12),
+        resistance("RW", "out", "0", 2e9),
+        resistance("RT", "s", "t", 1e3),
+        inductance("LT", "t", "0", 4.83e-6),
+        capacitance("CT", "t", "0", 10e-6),
+        transconductance("GT", ("x", "0"), ("t", "0"), 1e-3),
+        resistance("RX", "x", "0", 1e3),
+    ]
+    network = Network.from_parts(parts, output=Port("out"))
+    resonance = 1.0 / (2.0 * math.pi * math.sqrt(4.83e-6 * 10e-6))
+    near = find_midband(network, at_hz=1.0003 * resonance)
+    assert near.plateau
+    assert not parts_at(network, 2j * math.pi * near.frequency_hz)
+    bands = classify(network, near)
+    assert bands.gain_setting == {"CS", "CW"}
+    assert not bands.sound
+    assert classify(network, find_midband(network, at_hz=100.0 * resonance)).sound
+    assert review_network(network, midband_hz=near.frequency_hz).nodes == ()

@@ -179,3 +179,9 @@ def test_a_row_of_huge_entries_takes_no_digits_from_the_output(limit: int, monke
     assert at.response[0] == pytest.approx(exact, rel=1e-14)
     assert at.adjoint[0] @ network.drive == pytest.approx(exact, rel=1e-3)
     assert response(network, np.array([1.0]))[0] == pytest.approx(exact, rel=1e-14)
+
+
+def test_a_network_of_ground_alone_answers_with_nothing() -> None:
+    network = Network.from_parts([resistance("R1", "0", "0", 1e3)], output=Port("0"))
+    assert network.size == 0
+    assert np.all(response(network, FREQUENCIES) == 0.0)

@@ -13,7 +13,7 @@ from tauledger.devices.parts import Part, capacitance, inductance, resistance, t
 from tauledger.network.assemble import Network
 from tauledger.network.bands import classify, find_midband
 from tauledger.network.solve import Complex, Real, on_axis, response
-from tauledger.network.spectrum import frequency_grid, in_order, pole_frequencies, zero_frequencies
+from tauledger.network.spectrum import frequency_grid, in_order, natural_frequencies, pole_frequencies, zero_frequencies
 
 ACCURACY = 1e-6
 """QZ itself loses up to 1e-7 on poles twelve decades apart."""
@@ -178,3 +178,11 @@ def test_the_grid_is_closer_around_a_resonance_and_nowhere_wider_than_asked() ->
     grid = frequency_grid(1.0, 1e9, 60, roots)
     assert np.all(np.diff(np.log10(grid)) <= 1.0 / 60.0 + 1e-12)
     assert np.min(np.abs(grid - 1e6)) < 1.0
+
+
+def test_a_shift_at_which_rounding_leaves_nothing_of_g_is_taken_elsewhere() -> None:
+    g, c = np.eye(2), np.array([[1.0, -1.0], [-1.0, 1.0]])
+    with pytest.raises(np.linalg.LinAlgError):
+        np.linalg.inv(g + 2.0**60 * c)
+    assert len(natural_frequencies(g, c, 2.0**55, 2.0**65)) == 0
+    assert natural_frequencies(g, c, 0.1, 10.0) == pytest.approx([-0.5], rel=1e-9)

@@ -13,7 +13,7 @@ from tauledger.circuit import fold
 from tauledger.devices.parts import Part
 from tauledger.errors import NetworkError
 from tauledger.network.assemble import Network, assemble
-from tauledger.network.gain_setting import gain_setting
+from tauledger.network.gain_setting import gain_setting, parts_at
 from tauledger.network.lines import at_rest
 from tauledger.network.merge import joined_nodes as joined_nodes
 from tauledger.network.merge import passes, renamed
@@ -41,8 +41,9 @@ class Bands(Struct, frozen=True):
     merged: every node of the network → its node in `upper` (nodes joined by short capacitors share one; "0" wins).
     upper: short capacitors merged, open inductors taken out; at `s_mid` it is the mid-band network.
     lower: open capacitors taken out, short inductors merged; for s → ∞ (with class "gain": at s_mid) likewise.
-    sound: the gain of the mid-band network is within 2 % of |H(f_mid)|; where not, no hand numbers, and where
-    the merged network cannot even be built, upper and lower are the whole network.
+    sound: the gain of the mid-band network is within 2 % of |H(f_mid)|, and where capacitors set it no resonance lies
+    at mid-band; where not, no hand numbers, and where the merged network cannot even be built, upper and lower are the
+    whole network.
     """
 
     network: Network
@@ -120,6 +121,8 @@ def classify(network: Network, midband: MidBand) -> Bands:
     except NetworkError:
         upper, lower, error = network, network, float("inf")
         merged = {node: node for node in merged}
+    if setting and not all(parts_at(one, 2j * np.pi * midband.frequency_hz) for one in (upper, lower)):
+        error = float("inf")
     return Bands(
         network=network,
         midband=midband,

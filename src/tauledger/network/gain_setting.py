@@ -23,6 +23,8 @@ from tauledger.network.spectrum import pole_frequencies
 SETS_THE_GAIN = 0.2
 # The trapezoidal rule on a circle converges like (distance ratio)^-n: a plateau of half a decade gives 1.7^-128.
 CONTOUR_POINTS = 128
+# A pole nearer to s₀ from below leaves an error of more than 0.7^64 = 1e-10 of that rule.
+BELOW = 0.7
 
 
 def gain_setting(network: Network, midband: MidBand) -> frozenset[str]:
@@ -74,6 +76,12 @@ def impedance_below(network: Network, s: complex) -> Complex:
         raise NetworkError("the small-signal network has no unique solution") from error
     weights = radius * turns / (s - radius * turns) / CONTOUR_POINTS
     return np.asarray(np.tensordot(weights, z, axes=1), dtype=np.complex128)
+
+
+def parts_at(network: Network, s: complex) -> bool:
+    """Whether |s| parts the poles: the highest of those below it, a resonance at mid-band among them, is not near."""
+    poles = np.abs(pole_frequencies(network))
+    return float(np.max(poles[poles < abs(s)], initial=0.0)) <= BELOW * abs(s)
 
 
 def impedance_above(network: Network, s: complex) -> Complex:

@@ -25,7 +25,7 @@ CANCEL_WITHIN = 0.02
 DEFECTIVE = 1e-6
 SAME_ROOT = 1e-6
 # Where rounding makes a zero pivot of what a large coupling capacitor leaves, the next one further off is taken.
-BESIDE = (1e-9, 3e-9, 1e-8, 1e-7)
+BESIDE = (1e-9, 3e-9, 1e-8, 3e-8, 1e-7, 1e-6, 1e-5)
 GOLDEN = 0.5 * (np.sqrt(5.0) - 1.0)
 
 
@@ -158,24 +158,35 @@ def pole_owners(network: Network, poles: Complex) -> tuple[dict[str, float], ...
 
 def _eigenvectors(network: Network, poles: Complex) -> tuple[Complex, Complex]:
     """Give right and left eigenvectors of the pencil at its natural frequencies, (k, n) each, by inverse iteration."""
-    c = network.capacitance.dense(network.size)
-    # a start without symmetry: C takes equal voltages to nothing
-    start = 1.0 + np.mod(np.arange(1, network.size + 1) * GOLDEN, 1.0)
-    first = np.broadcast_to(start.astype(complex), (len(poles), network.size))
+    try:
+        return _iterated(network, poles, BESIDE[0])
+    except np.linalg.LinAlgError:
+        each = [_iterated_once(network, poles[k : k + 1]) for k in range(len(poles))]
+    return np.concatenate([right for right, _ in each]), np.concatenate([left for _, left in each])
+
+
+def _iterated_once(network: Network, pole: Complex) -> tuple[Complex, Complex]:
     for beside in BESIDE:
-        # just beside the pole, so that the matrix keeps an inverse when the pole is exact
-        y = admittance(network, poles * (1.0 + beside))
-        right = left = first
         try:
-            for _ in range(3):
-                right = np.linalg.solve(y, (right @ c.T)[..., None])[..., 0]
-                left = np.linalg.solve(y.transpose(0, 2, 1), (left @ c)[..., None])[..., 0]
-                right = right / np.linalg.norm(right, axis=1, keepdims=True)
-                left = left / np.linalg.norm(left, axis=1, keepdims=True)
+            return _iterated(network, pole, beside)
         except np.linalg.LinAlgError:
             continue
-        return right, left
     raise NetworkError("the small-signal network has no unique solution")
+
+
+def _iterated(network: Network, poles: Complex, beside: float) -> tuple[Complex, Complex]:
+    """Iterate just beside the poles, so that the matrices keep an inverse where a pole is exact."""
+    c = network.capacitance.dense(network.size)
+    y = admittance(network, poles * (1.0 + beside))
+    # a start without symmetry: C takes equal voltages to nothing
+    start = 1.0 + np.mod(np.arange(1, network.size + 1) * GOLDEN, 1.0)
+    right = left = np.broadcast_to(start.astype(complex), (len(poles), network.size))
+    for _ in range(3):
+        right = np.linalg.solve(y, (right @ c.T)[..., None])[..., 0]
+        left = np.linalg.solve(y.transpose(0, 2, 1), (left @ c)[..., None])[..., 0]
+        right = right / np.linalg.norm(right, axis=1, keepdims=True)
+        left = left / np.linalg.norm(left, axis=1, keepdims=True)
+    return right, left
 
 
 def _pole(s: complex, owners: Mapping[str, float], cancelled: bool) -> Pole:

@@ -78,7 +78,7 @@ def response(network: Network, frequency_hz: Real) -> Complex:
 
 def batches(network: Network, s: Complex) -> list[Complex]:
     """Cut s (k,) into pieces for which the matrices that are solved at once stay small."""
-    count = max(1, MOST_ENTRIES // network.size**2)
+    count = max(1, MOST_ENTRIES // max(network.size, 1) ** 2)
     return [s[first : first + count] for first in range(0, max(len(s), 1), count)]
 
 
@@ -106,7 +106,7 @@ def _output(network: Network, x: Complex) -> Complex:
 
 
 def _dense(y: Complex, right: Complex) -> Complex:
-    scale = _row_scale(np.max(np.abs(y), axis=-1))
+    scale = _row_scale(np.max(np.abs(y), axis=-1, initial=0.0))
     try:
         x = np.linalg.solve(y * scale[..., None], (right * scale)[..., None])[..., 0]
     except np.linalg.LinAlgError as error:

@@ -23,6 +23,7 @@ WINDOW = 1e3
 OFF_ROUND = 0.7
 SAME = 1e-6
 NEWTON_STEP = 1e-2
+ASIDE = (1.0, 1.3, 0.8, 1.0 / 30.0, 1.0 / 300.0)
 NO_SIGNAL = 1e-14
 _SPREAD = 0.5 * 2.0 ** np.arange(6)
 RESONANCE_OFFSETS = np.concatenate([-_SPREAD[::-1], _SPREAD])
@@ -68,7 +69,9 @@ def zero_frequencies(network: Network, poles: Complex) -> Complex:
     start = OFF_ROUND * float(finite.min()) / WINDOW**2
     found = natural_frequencies(g, c, start, min(float(finite.max()) * WINDOW**2, HIGHEST_RAD_S))
     bottom = solve(network, np.array([start], dtype=complex))
-    at_origin = round(float(log_slope(network, bottom)[0].real)) + int(np.sum(poles == 0.0))
+    slope = float(log_slope(network, bottom)[0].real)
+    # steeper than all unknowns together could make it: nothing but rounding reaches the output down there
+    at_origin = (round(slope) if abs(slope) <= n else 0) + int(np.sum(poles == 0.0))
     return in_order(np.concatenate([np.zeros(max(at_origin, 0), dtype=complex), _vanishing(network, found, poles)]))
 
 
@@ -112,15 +115,21 @@ def natural_frequencies(g: Complex | Real, c: Complex | Real, start: float, stop
 def shifted(g: Complex | Real, c: Complex | Real, shift: float) -> Complex:
     """Give all n values s = σ − 1/μ with μ the eigenvalues of (G + σ·C)⁻¹·C; infinite ones where μ = 0.
 
-    Raises NetworkError where G + σ·C is singular.
+    Far above what holds a node, rounding can make exactly nothing of that: then a σ beside the one asked for is taken.
+    Raises NetworkError where G + σ·C is singular there too.
     """
-    try:
-        mu = np.linalg.eigvals(np.linalg.solve(g + shift * c, c)).astype(complex)
-    except np.linalg.LinAlgError as error:
-        raise NetworkError("the small-signal network has no unique solution") from error
+    for aside in (1.0,) if shift == 0.0 else ASIDE:
+        at = shift * aside
+        try:
+            mu = np.linalg.eigvals(np.linalg.solve(g + at * c, c)).astype(complex)
+        except np.linalg.LinAlgError:
+            continue
+        break
+    else:
+        raise NetworkError("the small-signal network has no unique solution")
     s = np.full(len(mu), complex(np.inf))
     finite = np.abs(mu) > 0.0
-    s[finite] = shift - 1.0 / mu[finite]
+    s[finite] = at - 1.0 / mu[finite]
     return s
 
 
