@@ -15,6 +15,7 @@ from tauledger.record import Review
 from tauledger.report.document import document
 from tauledger.report.large_signal import first_limit, large_signal, slew_rate
 from tauledger.report.layout import Prose, Table
+from transient_judge import slope
 
 FIXTURES = Path(__file__).parents[2] / "fixtures"
 
@@ -85,7 +86,12 @@ def test_what_moves_a_transmission_line_is_not_judged(engine: Engine, tmp_path: 
     assert lead in text
     path = tmp_path / "line.cir"
     path.write_text(text.replace(lead, "C2 e lead 1u\nR9 lead near 50\nT1 near 0 out 0 z0=50 td=20n"), encoding="utf-8")
-    assert review(path, engine=engine).large_signal is None
+    found = review(path, engine=engine)
+    assert found.large_signal is not None
+    assert found.large_signal.nodes == ()
+    assert found.large_signal.not_judged
+    assert large_signal(found).blocks == ()
+    assert "large" not in [section.key for section in document(found).sections if section.blocks]
 
 
 def test_all_formats_tell_it(engine: Engine) -> None:
@@ -102,3 +108,99 @@ def test_all_formats_tell_it(engine: Engine) -> None:
 )
 def test_slew_rates_are_written_as_data_sheets_do(v_per_s: float, written: str) -> None:
     assert slew_rate(v_per_s) == written
+
+
+FOLDED = """a folded cascode with a load
+.model mn nmos level=1 vto=0.6 kp=100u lambda=0.05 gamma=0.4 phi=0.7 tox=15n cgso=0.3n cgdo=0.3n
+.model mp pmos level=1 vto=-0.7 kp=40u lambda=0.06 gamma=0.4 phi=0.7 tox=15n cgso=0.3n cgdo=0.3n
+VDD vdd 0 3.3
+VIN inp 0 dc 1.4 ac 1
+LB out inn 1G
+CB inn 0 1G
+IT tail 0 80u
+M1 f1 inp tail 0 mn w=50u l=1u
+M2 f2 inn tail 0 mn w=50u l=1u
+VB bp 0 2.3
+M7 f1 bp vdd vdd mp w=100u l=1u
+M8 f2 bp vdd vdd mp w=100u l=1u
+VC c 0 1.6
+M3 g1 c f1 vdd mp w=60u l=1u
+M4 out c f2 vdd mp w=60u l=1u
+M5 g1 g1 0 0 mn w=15u l=1u
+M6 out g1 0 0 mn w=15u l=1u
+CL out 0 2p
+.end
+"""
+
+
+def folded(folder: Path, text: str = FOLDED) -> Path:
+    path = folder / "folded.cir"
+    path.write_text(text, encoding="utf-8")
+    return path
+
+
+def test_the_output_of_a_folded_cascode_is_moved_by_the_tail_current(engine: Engine, tmp_path: Path) -> None:
+    """Transient runs of such an amplifier fall within some per cent of I/C; the nodes inside are no limit."""
+    found = review(folded(tmp_path), engine=engine)
+    assert found.large_signal is not None
+    slowest = found.large_signal.nodes[0]
+    assert (slowest.node, set(slowest.drivers)) == ("out", {"M1", "M2"})
+    assert slowest.output_slew_v_per_s == pytest.approx(80e-6 / 2.1e-12, rel=0.08)
+    buffer = FOLDED.replace("LB out inn 1G\nCB inn 0 1G", "VS inn out 0")
+    seen = slope(
+        folded(tmp_path, buffer),
+        tmp_path,
+        source="VIN inp 0 dc 1.4 ac 1",
+        pulse="PULSE(1.2 1.7 20n 1n 1n)",
+        start_v=1.35,
+        end_v=1.5,
+        stop_s=200e-9,
+    )
+    assert slowest.output_slew_v_per_s == pytest.approx(seen, rel=0.15)
+
+
+def test_an_open_amplifier_is_set_beside_its_unity_gain(engine: Engine, tmp_path: Path) -> None:
+    text = first_limit(review(folded(tmp_path), engine=engine))
+    assert "·f_u" in text
+    assert "·f_H" not in text
+
+
+def test_more_than_the_supplies_allow_is_said(engine: Engine, tmp_path: Path) -> None:
+    asked = Asked(swing_v=2.0)
+    assert "supplies from 0 V to 3.3" in first_limit(review(folded(tmp_path), engine=engine, asked=asked))
+    assert "supplies" not in first_limit(review(folded(tmp_path), engine=engine))
+
+
+def test_no_rate_is_told_where_the_output_itself_is_not_judged(engine: Engine, tmp_path: Path) -> None:
+    """A push-pull output gives more than it stands with; the rate of the stage before it says nothing of it."""
+    path = tmp_path / "board.cir"
+    cards = """push-pull output
+VCC vcc 0 10
+VEE vee 0 -10
+VIN in 0 DC 0 AC 1
+RS in b 1k
+Q3 m b e qn
+RE e e9 100
+IE e9 vee 2m
+CE e9 0 100u
+R3 vcc m 2.2k
+VA a m 0.65
+VB m d 0.65
+Q1 vcc a e1 qn
+Q2 vee d e2 qp
+R1 e1 out 10
+R2 e2 out 10
+RL out 0 1k
+CL out 0 1n
+.model qn npn(is=5e-15 bf=150 vaf=60 cje=8p cjc=4p tf=400p)
+.model qp pnp(is=5e-15 bf=150 vaf=60 cje=8p cjc=4p tf=500p)
+.end
+"""
+    path.write_text(cards, encoding="utf-8")
+    found = review(path, engine=engine, output="out")
+    assert found.large_signal is not None
+    assert found.large_signal.nodes == ()
+    assert large_signal(found).blocks == ()
+    (line,) = large_signal(found, verbose=True).blocks
+    assert isinstance(line, Prose)
+    assert line.text.startswith("not judged: ")

@@ -12,6 +12,7 @@ from msgspec.structs import replace
 
 from tauledger.answers.answer import Subject
 from tauledger.hand.slewing import Slew, slewing
+from tauledger.numbers import Numbers
 from tauledger.record import CauseFacts, LargeSignal, Review, SlewFacts, known_hz
 
 SWING_V = 1.0
@@ -36,15 +37,37 @@ def with_large_signal(found: Review, subject: Subject, swing_v: float | None) ->
         f_high_hz=high.hz if high is not None else None,
         lines=frozenset(node for part in numbers.network.parts if part.kind == "line" for node in part.nodes),
     )
-    if not slews.nodes:
+    if not slews.nodes and not slews.may_be_slower:
         return found
+    if slews.may_be_slower:
+        # a rate that is not known to be the lowest is none
+        return replace(found, large_signal=LargeSignal(peak, swing_v is not None, (), slews.may_be_slower))
     facts = LargeSignal(
         swing_v=peak,
         asked=swing_v is not None,
         nodes=tuple(_facts(slew, peak) for slew in slews.nodes),
         not_judged=slews.not_judged,
+        supplies_v=_supplies(subject.numbers),
     )
     return replace(found, large_signal=facts, causes=_causes(found, slews.nodes[0], peak))
+
+
+def _supplies(numbers: Numbers) -> tuple[float, float] | None:
+    """Give the lowest and highest direct voltage to ground that sources hold, which the output stays within.
+
+    None where there is no operating point, or where a coil stores energy and the output may swing beyond.
+    """
+    if numbers.bias is None or numbers.circuit is None:
+        return None
+    aids = set(numbers.midband.aids)
+    if any(part.kind == "inductance" and part.name not in aids for part in numbers.network.parts):
+        return None
+    driving = {part.owner for part in numbers.network.driving}
+    held = [0.0]
+    for element in numbers.circuit.elements:
+        if element.letter == "V" and element.name not in driving and 0 in element.nodes[:2]:
+            held += [float(numbers.bias.voltages[node]) for node in element.nodes[:2]]
+    return (min(held), max(held)) if len(held) > 1 else None
 
 
 def _facts(slew: Slew, peak: float) -> SlewFacts:

@@ -60,10 +60,15 @@ class Slew(Struct, frozen=True):
 
 
 class Slewing(Struct, frozen=True):
-    """The nodes of the signal path that can be judged, the slowest first, and titles of those that cannot."""
+    """The nodes of the signal path that can be judged, the slowest first, and titles of those that cannot.
+
+    may_be_slower: titles of those not judged that transistors move and that the least standing current there could move
+    slower than every judged one, and of the output: then none of the judged is known to be the limit.
+    """
 
     nodes: tuple[Slew, ...]
     not_judged: tuple[str, ...]
+    may_be_slower: tuple[str, ...] = ()
 
 
 class _Driver(Struct, frozen=True):
@@ -117,6 +122,8 @@ def slewing(
     output = abs(bands.midband.gain)
     nodes: list[Slew] = []
     not_judged: list[str] = []
+    least: list[tuple[str, float]] = []
+    ends = {scene.at[node] for node in (bands.network.port.plus, bands.network.port.minus) if node in scene.at}
     for k, row in enumerate(rows):
         if not row.in_path or row.second:
             continue
@@ -129,6 +136,7 @@ def slewing(
         current = _delivered(drivers[k], scene)
         if behind is None or current is None or moved & {scene.at[node] for node in lines if node in scene.at}:
             not_judged.append(row.title)
+            least.append((row.title, 0.0 if k in ends else _least_v_per_s(k, rows, scene, drivers[k], output)))
             continue
         size = abs(scene.voltage[row.members[0]])
         charge = float(abs(sum(scene.charge[other] for other in (k, *behind))))
@@ -147,7 +155,21 @@ def slewing(
                 cut_off_v=output / most if most else math.inf,
             )
         )
-    return Slewing(tuple(sorted(nodes, key=lambda slew: slew.output_slew_v_per_s)), tuple(not_judged))
+    nodes.sort(key=lambda slew: slew.output_slew_v_per_s)
+    slowest = nodes[0].output_slew_v_per_s if nodes else math.inf
+    slower = tuple(title for title, v_per_s in least if v_per_s < slowest)
+    return Slewing(tuple(nodes), tuple(not_judged), slower)
+
+
+def _least_v_per_s(
+    k: int, rows: Sequence[SignalNode], scene: _Scene, drivers: Sequence[_Driver], output: float
+) -> float:
+    """Give the slew rate at the output in V/s with the least standing current of those that move a row."""
+    charge = abs(scene.charge[k])
+    size = abs(scene.voltage[rows[k].members[0]])
+    if not charge or not size:
+        return math.inf
+    return min(driver.standing_a for driver in drivers) / charge * output
 
 
 def _scene(bands: Bands, devices: Sequence[Device], rows: Sequence[SignalNode], at_hz: float) -> _Scene:
@@ -269,7 +291,68 @@ def _delivered(drivers: Sequence[_Driver], scene: _Scene) -> tuple[float, tuple[
             if partner is not None and _mirrors(mirror, partner, scene):
                 tail = pair.standing_a + scene.standing[partner.name]
                 return tail * min(1.0, mirror.standing_a / pair.standing_a), (pair.name, partner.name)
+        for through, other in (drivers, drivers[::-1]):
+            folded = _through_cascodes(through, other, scene)
+            if folded is not None:
+                return folded
     return None
+
+
+def _through_cascodes(through: _Driver, other: _Driver, scene: _Scene) -> tuple[float, tuple[str, ...]] | None:
+    """Give what a pair delivers through a cascode, folded or not, while its mirror brings the partner's share.
+
+    Folded, a transistor of the pair takes its current from the cascode's: no more can go either way than both have.
+    """
+    for pair in _feeding(through, scene):
+        partner = _partner(pair, scene)
+        if partner is None or not any(_mirrors_through(one, partner, scene) for one in _feeding(other, scene)):
+            continue
+        tail = pair.standing_a + scene.standing[partner.name]
+        return min(tail, pair.standing_a + through.standing_a), (pair.name, partner.name)
+    return None
+
+
+def _feeding(driver: _Driver, scene: _Scene) -> tuple[_Driver, ...]:
+    """Give the transistors that a common-base transistor passes on; another one is its own."""
+    control, common = (abs(scene.moving[node]) for node in (driver.cell.control, driver.cell.common))
+    row = scene.at.get(driver.cell.common)
+    if row is None or driver.follows or control > STILL * common:
+        return (driver,)
+    return tuple(other for other in _drivers(row, scene) if not other.follows)
+
+
+def _mirrors_through(mirror: _Driver, partner: Device, scene: _Scene) -> bool:
+    """Whether a transistor mirrors the partner's current, with cascodes in the way of either."""
+    assert partner.cell is not None
+    control = scene.at.get(mirror.cell.control)
+    reached = _onwards(scene.at.get(partner.cell.output), scene)
+    if control is None or control not in reached:
+        return False
+    diodes = [d.cell for some in scene.ending.values() for d in some if d.cell is not None]
+    return any(
+        scene.at.get(cell.control) == control
+        and scene.at.get(cell.common) != control
+        and control in _onwards(scene.at.get(cell.output), scene)
+        for cell in diodes
+    )
+
+
+def _onwards(row: int | None, scene: _Scene) -> frozenset[int]:
+    """Give a row and those to which transistors pass the current whose control stands still."""
+    if row is None:
+        return frozenset()
+    found, ahead = {row}, [row]
+    while ahead:
+        here = ahead.pop()
+        for device in scene.ending.get(here, ()):
+            cell = device.cell
+            assert cell is not None
+            end = scene.at.get(cell.output)
+            still = abs(scene.voltage[cell.control]) <= STILL * abs(scene.voltage[cell.common])
+            if scene.at.get(cell.common) == here and end is not None and end not in found and still:
+                found.add(end)
+                ahead.append(end)
+    return frozenset(found)
 
 
 def _before(driver: _Driver, scene: _Scene) -> list[float]:

@@ -31,13 +31,16 @@ class SlewFacts(Struct, frozen=True):
 class LargeSignal(Struct, frozen=True):
     """The nodes of the signal path by their full-power bandwidth, the lowest first.
 
-    swing_v: peak at the output. asked: the user gave it. not_judged: titles of nodes where no one current is the limit.
+    swing_v: peak at the output. asked: the user gave it. not_judged: titles of nodes where no one current is the limit;
+    without any `nodes` one of them may be the slowest, and no rate is given. supplies_v: the lowest and highest voltage
+    that sources hold, None where the output may swing beyond them or they are not known.
     """
 
     swing_v: float
     asked: bool
     nodes: tuple[SlewFacts, ...]
     not_judged: tuple[str, ...]
+    supplies_v: tuple[float, float] | None = None
 
 
 class OutputRow(Struct, frozen=True):

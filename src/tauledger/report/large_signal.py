@@ -13,8 +13,10 @@ _SLEW_UNITS = (("V/ns", 1e9, 1e9), ("V/µs", 1e6, 1e4), ("V/ms", 1e3, 0.0))
 def large_signal(review: Review, *, verbose: bool = False) -> Section:
     """Give the node with the lowest full-power bandwidth; verbose: every node that could be judged."""
     facts = review.large_signal
-    if facts is None:
+    if facts is None or (not facts.nodes and not verbose):
         return Section(())
+    if not facts.nodes:
+        return Section((Prose(f"not judged: {', '.join(facts.not_judged)}", lead="LARGE SIGNAL ", hang=2),))
     below = any(cause.cause == "slews-first" for cause in review.causes)
     blocks: list[Block] = [Prose(first_limit(review), lead="LARGE SIGNAL ", style=CAUTION if below else "", hang=2)]
     if verbose:
@@ -36,14 +38,19 @@ def first_limit(review: Review) -> str:
         f"{movers(slowest)}'s {number(slowest.current_a, 'A', 3)} into {number(slowest.capacitance_f, 'F', 3)}: "
         f"{at_node}; {nominal(facts.swing_v, 'V')} peak to {number(slowest.full_power_hz, 'Hz', 3)}"
     )
-    edge = known_hz(review.f_high)
+    # of an amplifier that is meant to be closed around, f_H is no bandwidth that anybody uses
+    open_loop = review.f_unity is not None and bool(review.f_unity.elements)
+    edge, name = (known_hz(review.f_unity), "f_u") if open_loop else (known_hz(review.f_high), "f_H")
     if edge is not None:
         part = slowest.full_power_hz / edge
-        text += f", {part:.2g}·f_H" if part < 99.5 else f", {part:.0f}·f_H"
-        text += " only" if part < 1.0 else ""
+        text += f", {part:.2g}·{name}" if part < 99.5 else f", {part:.0f}·{name}"
+        text += " only" if part < 1.0 and not open_loop else ""
     weak = min(facts.nodes, key=lambda node: node.cut_off_v or float("inf"))
     if weak.cut_off_v is not None and weak.cut_off_v <= facts.swing_v:
         text += f"; {movers(weak)} is cut off from {number(weak.cut_off_v, 'V', 3)} peak on, in mid-band already"
+    if facts.supplies_v is not None and 2.0 * facts.swing_v > facts.supplies_v[1] - facts.supplies_v[0]:
+        low, high = (number(volt, "V", 3) for volt in facts.supplies_v)
+        text += f"; supplies from {low} to {high} do not allow {nominal(facts.swing_v, 'V')} peak"
     if facts.not_judged:
         text += f"; not judged: {', '.join(facts.not_judged)}"
     return text

@@ -23,7 +23,7 @@ def drive_section(review: Review) -> Section:
 def large_signal_section(review: Review) -> Section:
     """Give slew rates and full-power bandwidth."""
     facts = review.large_signal
-    if facts is None:
+    if facts is None or not facts.nodes:
         return Section("large", "", ())
     blocks = (Prose(sentence(first_limit(review))), large_signal.large_signal(facts))
     return Section("large", "Large signal", blocks)
