@@ -35,6 +35,7 @@ from tauledger.solution import Bias
 POINTS_PER_DECADE = 40
 # Agreement above this: the rebuilt network is not the simulated circuit, and nothing that rests on it is given.
 DISAGREES = 1e-3
+BEYOND_THE_EDGES = 100.0
 
 
 class Numbers(Struct, frozen=True):
@@ -88,11 +89,12 @@ def solve(
         linearised = fold_instances(circuit, linearised, fold)
     network = Network.from_parts(linearised.parts, output=circuit.output)
     numbers = solve_network(network, devices=linearised.devices, midband_hz=midband_hz)
-    grid = _sweep_grid(numbers, ac_range(netlist))
+    asked = ac_range(netlist)
+    grid = _sweep_grid(numbers, asked)
     simulated = simulate(engine.sweep, grid, midband=numbers.midband, ripple_hz=_ripple_grids(numbers, grid))
     swept = simulated.all_of_it
     exact = response(network, swept.frequency_hz)
-    agreed = agreement(swept.frequency_hz, exact, swept.response, numbers.midband.gain)
+    agreed = agreement(swept.frequency_hz, exact, swept.response, numbers.midband.gain, _page_range(numbers, asked))
     if agreed.max_relative_error > DISAGREES:
         simulated = simulate(engine.sweep, grid, midband=None)
     return replace(numbers, circuit=circuit, bias=bias, simulated=simulated, agreement=agreed)
@@ -163,15 +165,34 @@ def _sweep_grid(numbers: Numbers, asked: tuple[float, float] | None) -> NDArray[
     start, stop = reach[0] * 100.0, min(reach[1] / 100.0, HIGHEST_HZ)
     low, high = numbers.edges.f_low, numbers.edges.f_high
     if low is not None and low.hz is not None:
-        start = min(start, low.hz / 100.0)
+        start = min(start, low.hz / BEYOND_THE_EDGES)
     if high is not None and high.hz is not None:
         start = min(start, high.hz / 1e4)
-        # one pole alone reaches a gain of 1 at the gain-bandwidth product
-        falls_to_one = 2.0 * abs(numbers.midband.gain) * high.hz if is_ratio(numbers.network) else 0.0
-        stop = max(stop, high.hz * 100.0, min(falls_to_one, HIGHEST_HZ))
+        stop = max(stop, high.hz * BEYOND_THE_EDGES, _falls_to_one_hz(numbers, high.hz))
     if asked is not None:
         start, stop = min(start, asked[0]), max(stop, asked[1])
     return decades(start, max(stop, 10.0 * start), POINTS_PER_DECADE)
+
+
+def _page_range(numbers: Numbers, asked: tuple[float, float] | None) -> tuple[float, float]:
+    """Give the range in Hz on which the page rests: f_L/100 to 100·f_H, unity gain, and what the netlist asks for.
+
+    A side without an edge has no end. Beyond, the sweep is as wide as the poles are, and two ways of rounding differ.
+    """
+    low, high = numbers.edges.f_low, numbers.edges.f_high
+    start = low.hz / BEYOND_THE_EDGES if low is not None and low.hz is not None else 0.0
+    stop = float("inf")
+    if high is not None and high.hz is not None:
+        stop = max(BEYOND_THE_EDGES * high.hz, _falls_to_one_hz(numbers, high.hz))
+    if asked is not None:
+        start, stop = min(start, asked[0]), max(stop, asked[1])
+    return start, stop
+
+
+def _falls_to_one_hz(numbers: Numbers, f_high_hz: float) -> float:
+    """Give where the gain may be 1: one pole alone reaches it at the gain-bandwidth product; 0 of what is no ratio."""
+    gain = abs(numbers.midband.gain) if is_ratio(numbers.network) else 0.0
+    return min(2.0 * gain * f_high_hz, HIGHEST_HZ)
 
 
 def _ripple_grids(numbers: Numbers, grid: NDArray[np.float64]) -> tuple[NDArray[np.float64], ...]:

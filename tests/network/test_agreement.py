@@ -34,3 +34,13 @@ def test_what_is_not_finite_cannot_agree(wrong: float) -> None:
 def test_nothing_cannot_agree_with_nothing() -> None:
     with pytest.raises(NetworkError, match="cannot be compared"):
         agreement(HZ[:0], np.zeros(0, dtype=complex), np.zeros(0, dtype=complex), 1.0)
+
+
+def test_what_lies_beyond_the_range_that_counts_is_told_apart() -> None:
+    sweep = np.array([1.0 + 0j, 2.0, 4.0])
+    wrong = sweep * np.array([1.0, 1.0 + 3e-9j, 1.0 - 1e-5])
+    found = agreement(HZ, wrong, sweep, 4.0, within_hz=(0.0, 10.0))
+    assert (found.at_hz, found.points, found.beyond_at_hz) == (10.0, 2, 100.0)
+    assert found.max_relative_error == pytest.approx(3e-9, rel=1e-6)
+    assert found.beyond == pytest.approx(1e-5, rel=1e-6)
+    assert agreement(HZ, wrong, sweep, 4.0, within_hz=(1e6, 1e7)) == agreement(HZ, wrong, sweep, 4.0)

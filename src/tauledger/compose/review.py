@@ -17,6 +17,7 @@ from tauledger.netlist import Netlist, read_past, read_past_places
 from tauledger.network.edges import Edge
 from tauledger.network.midband import MidBand
 from tauledger.numbers import Numbers
+from tauledger.quantity import engineering
 from tauledger.record import (
     SCHEMA,
     AgreementFacts,
@@ -39,6 +40,8 @@ PEAKS = 0.1
 STEP_HOLDS = 10.0
 # ngspice and the network agree to 1e-9; a last step smaller than this says nothing.
 WORTH_A_STEP = 1e-4
+# rounding leaves less
+DIFFERS = 1e-6
 
 
 def compose(numbers: Numbers, explanation: Explanation, *, netlist: Netlist | None = None, title: str = "") -> Review:
@@ -182,6 +185,23 @@ def _difference(hz: float | None, reference: float | None) -> float | None:
 
 def _notes(numbers: Numbers, explanation: Explanation, netlist: Netlist | None) -> tuple[NoteFacts, ...]:
     notes = [*(note_facts(note) for note in explanation.notes), *aid_notes(numbers)]
+    notes += _differs_far_off(numbers)
     notes += [NoteFacts("engine-warning", "", line) for line in (numbers.bias.warnings if numbers.bias else ())]
     read = (*(netlist.notes if netlist else ()), *(numbers.circuit.notes if numbers.circuit else ()))
     return (*notes, *(NoteFacts("how-read", note.where, note.says) for note in dict.fromkeys(read)))
+
+
+def _differs_far_off(numbers: Numbers) -> list[NoteFacts]:
+    """Say how far network and sweep differ beyond the range on which the page rests, where that is worth a word."""
+    agreed = numbers.agreement
+    if agreed is None or agreed.beyond <= DIFFERS:
+        return []
+    at_hz = engineering(agreed.beyond_at_hz, "Hz", 3)
+    return [
+        NoteFacts(
+            "differs-far-off",
+            "",
+            f"beyond the range that counts here ngspice and the rebuilt network differ by up to {agreed.beyond:.1e}, "
+            f"at {at_hz}",
+        )
+    ]
