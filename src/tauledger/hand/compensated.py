@@ -1,8 +1,8 @@
 """The compensated stage: an inverting stage with a capacitance, or that and a resistor, from its output to its input.
 
 It is found among transistors, resistors and capacitances, never by a name; an inner node of a device is taken with its
-outer one, as on paper. Of several the one whose input has the
-longest time constant R1·(C1 + C_c·(1 + A2)) is taken: it makes the dominant pole.
+outer one, as on paper. Of several the one whose input has the longest time constant R1·(C1 + C_c·(1 + A2)) is taken:
+it makes the dominant pole.
 """
 
 from __future__ import annotations

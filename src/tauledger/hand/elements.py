@@ -27,12 +27,16 @@ LONE_WORDS = ("input", "common terminal", "output")
 
 
 class Resistor(Struct, frozen=True):
-    """One resistor between two hand nodes, ohm; parallel ones between live nodes are taken together."""
+    """One resistor between two hand nodes, ohm; parallel ones between live nodes are taken together.
+
+    inside: it is no card of the netlist, but a device's own, as r_o.
+    """
 
     name: str
     a: str
     b: str
     ohm: float
+    inside: bool = False
 
     def other(self, node: str) -> str:
         """Give the end that is not `node`."""
@@ -243,7 +247,7 @@ def read_resistors(network: Network, hand: Mapping[str, str], used: set[str]) ->
 
     used: names of the parts that belong to a cell already.
     """
-    grouped: dict[tuple[str, str], list[tuple[str, float]]] = {}
+    grouped: dict[tuple[str, str], list[Part]] = {}
     resistors: list[Resistor] = []
     for part in network.parts:
         if part.kind != "conductance" or part.name in used or part.value == 0.0:
@@ -252,14 +256,13 @@ def read_resistors(network: Network, hand: Mapping[str, str], used: set[str]) ->
         if a == b:
             continue
         if GROUND in (a, b):
-            resistors.append(Resistor(_resistor_name(part), a, b, 1.0 / part.value))
+            resistors.append(Resistor(_resistor_name(part), a, b, 1.0 / part.value, bool(part.label)))
         else:
-            grouped.setdefault((a, b), []).append((_resistor_name(part), part.value))
+            grouped.setdefault((a, b), []).append(part)
     for (a, b), together in grouped.items():
-        name = " ‖ ".join(name for name, _ in together)
-        resistors.append(
-            Resistor(name if len(together) == 1 else f"({name})", a, b, 1.0 / sum(value for _, value in together))
-        )
+        name = " ‖ ".join(map(_resistor_name, together))
+        inside = all(part.label for part in together)
+        resistors.append(Resistor(name if len(together) == 1 else f"({name})", a, b, _parallel_ohm(together), inside))
     return tuple(resistors)
 
 

@@ -181,7 +181,9 @@ def _resistor(resistor: Resistor, mirror: Mirror) -> Resistor | None:
     if not {a, b} & mirror.image.keys():
         return None
     if mirror.image.get(a) == b or mirror.image.get(b) == a:
-        return Resistor(f"{resistor.name}/2", a if a in mirror.image else b, GROUND, resistor.ohm / 2.0)
+        return Resistor(
+            f"{resistor.name}/2", a if a in mirror.image else b, GROUND, resistor.ohm / 2.0, resistor.inside
+        )
     return replace(resistor, a=_end(a, mirror), b=_end(b, mirror))
 
 

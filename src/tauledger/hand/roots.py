@@ -237,11 +237,6 @@ def _crossed(circuit: EquivalentCircuit, places: Places, place: str) -> bool:
     return any(abs(crossing(circuit, node)) >= CROSSING_IN_PATH for node in places.members[place])
 
 
-def _inside(name: str) -> bool:
-    """Whether a resistor is a device's own, as "r_o(Q1)"; several cards together are "(R1 ‖ R2)"."""
-    return name.endswith(")") and not name.startswith("(")
-
-
 def _rail(cell: Cell, circuit: EquivalentCircuit) -> str:
     """Give the place of the common terminal, behind the transistor's own series resistance."""
     terminal = [t.outer for t in circuit.terminals if t.owner == cell.owner and t.inner == cell.common]
@@ -272,7 +267,7 @@ def _forward(circuit: EquivalentCircuit, places: Places, stage: CompensatedStage
     commons = {places.of(cell.common) for cell in circuit.cells if places.of(cell.output) != GROUND}
     for resistor in circuit.resistors:
         ends = places.ends(resistor)
-        if len(ends) < 2 or _inside(resistor.name) or (GROUND in ends and not commons & ends - {GROUND}):
+        if len(ends) < 2 or resistor.inside or (GROUND in ends and not commons & ends - {GROUND}):
             continue
         farad = bridging(*sorted(ends))
         if farad:
