@@ -27,6 +27,8 @@ def test_a_byte_order_mark_is_no_part_of_the_first_column() -> None:
         ("", "1:1", "there is no curve in this file"),
         ("# nothing\n", "1:1", "there is no curve in this file"),
         ("f_hz,gain\n1,2\n", "1:6", "no such column: gain"),
+        ("f_hz;gain_db\n1;2\n", "1:5", "the columns stand apart by semicolons, not by commas"),
+        ("f_hz\tgain_db\n1\t2\n", "1:5", "the columns stand apart by tabs, not by commas"),
         ("f_hz,gain_db,\n1,2,\n", "1:14", "no such column: no name"),
         ("f_hz,gain_db,gain_db\n1,2,3\n", "1:14", "the column gain_db stands there twice"),
         ("f_hz,phase_deg\n1,2\n", "1:1", "the column gain_db is missing"),
@@ -73,3 +75,12 @@ def test_what_could_steer_a_terminal_is_shown_as_a_sign() -> None:
     with pytest.raises(NetlistError) as caught:
         read_curve(b"f_hz,gain_db\n1,\x1b[31m\n", "bench.csv")
     assert "\x1b" not in str(caught.value)
+
+
+@pytest.mark.parametrize(
+    "text", ["", "f_hz,gain\n1,2\n", "f_hz;gain_db\n1;2\n", "f_hz,phase_deg\n1,2\n", "f_hz,gain_db\n1\n"]
+)
+def test_a_hint_fits_into_eighty_columns(text: str) -> None:
+    with pytest.raises(NetlistError) as caught:
+        read_curve(text.encode(), "bench.csv")
+    assert all(len(one.hint) <= 78 for one in caught.value.diagnostics)

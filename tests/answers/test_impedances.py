@@ -224,3 +224,15 @@ def test_a_source_before_a_virtual_short_sees_its_own_resistor_alone() -> None:
     )
     assert beyond.points[0].parallel_ohm == 0.0
     assert whole.points[0].parallel_ohm == pytest.approx(1e3, rel=1e-9)
+
+
+def test_measuring_aids_are_no_part_of_an_impedance(engine: Engine) -> None:
+    """1 GH at the output and 1 GF beyond it, far below the frequency that is told."""
+    facts = review(FIXTURES / "servo_gain.cir", engine=engine, asked=Asked(impedances=True))
+    assert facts.f_high is not None
+    assert facts.f_high.exact_hz is not None
+    output = found(facts, "output", "")
+    assert output.points[0].hz == pytest.approx(facts.f_high.exact_hz / 30.0)
+    assert output.points[0].parallel_farad is not None
+    assert output.points[0].parallel_farad > 0.0
+    assert output.points[0].parallel_ohm == pytest.approx(output.hand_ohm or math.nan, rel=0.05)

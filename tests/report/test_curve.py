@@ -114,3 +114,16 @@ def test_a_curve_that_agrees_has_no_largest_difference() -> None:
     same = replace(CURVE, leaves=(), largest_db=1e-4, largest_deg=0.01, offset_db=0.001)
     assert differs_text(same) == "Nowhere off by 1 dB in gain or 5° in phase."
     assert level_text(same).endswith("at mid-band the same as ngspice.")
+
+
+@pytest.mark.parametrize(
+    ("turned", "says"),
+    [
+        (180.0, "it is inverted, and lies 0.50 dB above ngspice, which is taken out."),
+        (-178.0, "it is inverted, and lies 0.50 dB above and 2.0° ahead of ngspice, which is taken out."),
+        (179.0, "it is inverted, and lies 0.50 dB above and 1.0° behind ngspice, which is taken out."),
+        (90.0, "it lies 0.50 dB above and 90.0° ahead of ngspice, which is taken out."),
+    ],
+)
+def test_an_inverted_probe_is_called_so(turned: float, says: str) -> None:
+    assert level_text(replace(CURVE, offset_deg=turned)).endswith(says)

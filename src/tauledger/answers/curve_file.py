@@ -61,7 +61,8 @@ def read_curve(data: bytes, path: str) -> MeasuredCurve:
     )
 
 
-_FORM = f"write the header {HEADER} (phase_deg may be left out), then a line of numbers for each point"
+_FORM = f"head it {HEADER} (the last is optional), then a line per point"
+SEPARATORS = {";": "semicolons", "\t": "tabs"}
 
 
 def _text(data: bytes, path: str) -> str:
@@ -96,6 +97,11 @@ def _fields(line: str) -> list[tuple[int, str]]:
 
 def _columns(path: str, number: int, line: str) -> tuple[str, ...]:
     """Read the header: which column holds what."""
+    other = next((mark for mark in SEPARATORS if mark in line and "," not in line), None)
+    if other is not None:
+        what = f"the columns stand apart by {SEPARATORS[other]}, not by commas"
+        hint = "put commas between them, and a point in each number"
+        raise NetlistError(_fault(path, number, line.index(other) + 1, line, what, hint))
     names: list[str] = []
     for start, text in _fields(line):
         name = text.casefold()

@@ -38,6 +38,8 @@ from tauledger.network.solve import Complex, Real
 from tauledger.numbers import Numbers
 from tauledger.record import ImpedanceCurvePoint, ImpedanceFacts, ImpedancePoint
 
+# So far below f_H the gain is that of mid-band within 0.1 %, and the aids are as far away as may be.
+FAR_FROM_AIDS = 30.0
 MIDBAND, UPPER_EDGE = "mid-band", "f_H"
 
 
@@ -131,14 +133,20 @@ def _outputs(subject: Subject) -> list[ImpedanceFacts]:
 
 
 def _frequencies(numbers: Numbers) -> _Frequencies:
-    """Give mid-band and f_H and the frequencies of the curve; of a band from DC on the lowest is taken, above 0 Hz."""
+    """Give mid-band and f_H and the frequencies of the curve; of a band from DC on the lowest is taken, above 0 Hz.
+
+    With measuring aids it is taken further up on the plateau: at its lower end the aids are still part of an impedance.
+    """
     high = numbers.edges.f_high
     points = []
     if high is not None and high.hz is not None:
         points.append((UPPER_EDGE, high.hz))
     grid = numbers.simulated.sweep.frequency_hz if numbers.simulated is not None else numbers.edges.frequency_hz
     grid = grid if len(grid) else decades(1.0, 1e9, 10)
-    points.insert(0, (MIDBAND, numbers.midband.frequency_hz or float(grid[0])))
+    middle = numbers.midband.frequency_hz or float(grid[0])
+    if numbers.midband.aids and high is not None and high.hz is not None:
+        middle = max(middle, high.hz / FAR_FROM_AIDS)
+    points.insert(0, (MIDBAND, middle))
     return _Frequencies(tuple(name for name, _ in points), np.array([hz for _, hz in points]), grid)
 
 

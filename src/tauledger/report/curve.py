@@ -2,12 +2,16 @@
 
 from __future__ import annotations
 
+import math
+
 from tauledger.record import CurveFacts, CurveFigure, CurveLeaves, Review, StrayFacts
 from tauledger.report.layout import Block, Prose, Row, Section, Table
 from tauledger.report.wording import NO_NUMBER, move, network_rejected, number
 
 FIGURES = {"f_low": "f_L", "f_high": "f_H", "f_unity": "f_u"}
 OFF_BY = {"gain": "1 dB in gain", "phase": "5° in phase"}
+# A probe or a transformer that is turned round, and not one that is late.
+INVERTED_DEG = 150.0
 # Less than what is printed of them.
 SAME_DB, SAME_DEG = 0.005, 0.05
 
@@ -40,14 +44,19 @@ def level_text(curve: CurveFacts) -> str:
     told = []
     if abs(curve.offset_db) >= SAME_DB:
         told.append(f"{abs(curve.offset_db):.2f} dB {'above' if curve.offset_db > 0.0 else 'below'}")
-    if curve.offset_deg is not None and abs(curve.offset_deg) >= SAME_DEG:
-        told.append(f"{abs(curve.offset_deg):.1f}° {'ahead of' if curve.offset_deg > 0.0 else 'behind'}")
-    if not told:
+    turned, inverted = curve.offset_deg, False
+    if turned is not None and abs(turned) >= INVERTED_DEG:
+        turned, inverted = turned - math.copysign(180.0, turned), True
+    if turned is not None and abs(turned) >= SAME_DEG:
+        told.append(f"{abs(turned):.1f}° {'ahead of' if turned > 0.0 else 'behind'}")
+    if not told and not inverted:
         return f"{read}; at mid-band the same as {_against(curve)}."
     where = f"at {number(curve.level_from_hz, 'Hz', 3)}"
     if curve.level_to_hz > curve.level_from_hz:
         where = f"from {number(curve.level_from_hz, 'Hz', 3)} to {number(curve.level_to_hz, 'Hz', 3)}"
-    return f"{read}; {where} it lies {' and '.join(told)} {_against(curve)}, which is taken out."
+    lies = f"lies {' and '.join(told)} {_against(curve)}" if told else ""
+    said = ", and ".join(filter(None, ("is inverted" if inverted else "", lies)))
+    return f"{read}; {where} it {said}, which is taken out."
 
 
 def differs_text(curve: CurveFacts) -> str:
