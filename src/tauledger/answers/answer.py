@@ -33,6 +33,10 @@ def answer(found: Review, subject: Subject, asked: Asked) -> Review:
 
     Raises InputError for a question that this circuit cannot answer.
     """
+    if subject.numbers.trusted and (asked.loops or may_have_a_loop(subject)):
+        from tauledger.answers.loop import with_loops
+
+        found = with_loops(found, subject, asked.loops)
     found = with_unity_gain(found, subject, asked=asked.unity)
     if found.f_unity is not None and found.f_unity.elements:
         from tauledger.answers.phase_budget import phase_budget
@@ -75,10 +79,6 @@ def answer(found: Review, subject: Subject, asked: Asked) -> Review:
         from tauledger.answers.large_signal import with_large_signal
 
         found = with_large_signal(found, subject, asked.swing_v)
-    if subject.numbers.trusted and (asked.loops or may_have_a_loop(subject)):
-        from tauledger.answers.loop import with_loops
-
-        found = with_loops(found, subject, asked.loops)
     if asked.wants:
         from tauledger.answers.wants import want_facts
 

@@ -17,13 +17,13 @@ from tauledger.circuit import GROUND, Circuit, Instance, fold
 from tauledger.devices.catalogue import linearise
 from tauledger.devices.family import Device
 from tauledger.devices.instances import elements_inside, macromodels
-from tauledger.devices.parts import Part
+from tauledger.devices.parts import Part, voltage_source
 from tauledger.errors import InputError, NetworkError
 from tauledger.explain import Explanation
 from tauledger.hand.equivalent import joined_nodes
 from tauledger.hand.feedback import LOOP_ABOVE, FoundLoop, find_loop
 from tauledger.network.admittance import admittance
-from tauledger.network.assemble import Network
+from tauledger.network.assemble import Network, assemble
 from tauledger.network.loop_shape import signed_size
 from tauledger.network.return_ratio import (
     BILATERAL,
@@ -42,6 +42,9 @@ from tauledger.network.transformers import REFLECTED, TURNS
 from tauledger.numbers import Numbers
 
 FAR_BELOW = 1e6
+NO_LOOP = 1e-9
+DIES = 0.1
+HELD = "loop'held"
 
 
 class Amplifier(Struct, frozen=True):
@@ -262,6 +265,16 @@ def _at_instance(numbers: Numbers, network: Network, instance: Instance) -> Plac
     at_hz = _reference(numbers)
     owners = dict.fromkeys(part.owner.partition("'")[0] for part in inputs)
     owner = max(owners, key=lambda one: abs(_ratio(network, one, at_hz)))
+    if abs(_ratio(network, owner, at_hz)) < NO_LOOP:
+        fed_back = _fed_back_current(network, inside, pins, at_hz)
+        if fed_back:
+            where = f"source {fed_back.removeprefix(instance.name + '.')} of {instance.name}"
+            return Place(
+                instance.name,
+                where,
+                at_source(network, _controlled(network, fed_back)),
+                cut_out_of(numbers.circuit, fed_back),
+            )
     part = next(part for part in inputs if part.owner.partition("'")[0] == owner)
     opening = at_source(network, _controlled(network, owner))
     control = (part.nodes[2], part.nodes[3])
@@ -270,6 +283,27 @@ def _at_instance(numbers: Numbers, network: Network, instance: Instance) -> Plac
     amplifier = Amplifier(instance.name, tuple(inside), control, output, others) if output else None
     where = f"input source {owner.removeprefix(instance.name + '.')} of {instance.name}"
     return Place(instance.name, where, opening, cut_out_of(numbers.circuit, owner), amplifier=amplifier)
+
+
+def _fed_back_current(network: Network, inside: list[Part], pins: tuple[str, ...], at_hz: float) -> str:
+    """Name the source inside with the largest T that dies when the pin which it moves most is held; empty for none.
+
+    Feedback to a low-impedance input comes as a current: no source has it between its input pins.
+    """
+    owners = dict.fromkeys(
+        part.owner.partition("'")[0]
+        for part in inside
+        if part.kind in CONTROLLED and part.label not in (TURNS, REFLECTED)
+    )
+    for owner in sorted(owners, key=lambda one: -abs(_ratio(network, one, at_hz))):
+        output = _output_pin(at_source(network, _controlled(network, owner)), pins, at_hz)
+        t = abs(_ratio(network, owner, at_hz))
+        if t < NO_LOOP or not output:
+            continue
+        held = (*network.parts, voltage_source(HELD, output, GROUND))
+        if abs(_ratio(assemble(held, network.port, network.amplitudes), owner, at_hz)) < DIES * t:
+            return owner
+    return ""
 
 
 def _reference(numbers: Numbers) -> float:
