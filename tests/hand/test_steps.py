@@ -126,7 +126,7 @@ def test_no_step_is_called_an_improvement(board: boards.Board) -> None:
 def test_exact_constants_are_worth_a_word_where_they_differ() -> None:
     nodes = [plain_node("a", 10e-9, exact=8e-9), plain_node("b", 2e-9)]
     steps = upper_steps(nodes, combine_upper(nodes, np.array([-1e8, -6e8], dtype=complex), NONE), full_hz=15e6)
-    assert steps[2].why == "exact time constants: node a 10.0 ns by hand, 8.00 ns exact"
+    assert steps[2].why == "node a 10.0 ns by hand, 8.00 ns exact"
 
 
 def test_negative_time_constant_is_left_out_and_said_so() -> None:

@@ -179,7 +179,8 @@ def _other_nodes(rows: list[SignalNode | InductorRow]) -> str:
     if not others:
         return "no other node counts" + left_out
     told = [f"{row.title} takes {_seconds(row.time_constant_s)}" for row in others[:2]]
-    more = f", {len(others) - 2} more the rest" if len(others) > 2 else ""
+    rest = len(others) - len(told)
+    more = "" if not rest else "; one more takes the rest" if rest == 1 else f"; {rest} more take the rest"
     return f"{' and '.join(told)} of {_seconds(total)}{more}{left_out}"
 
 
@@ -190,10 +191,7 @@ def _exact_nodes(rows: list[SignalNode | InductorRow]) -> str:
         return "the time constants by hand agree with the exact ones"
     hand, exact = worst.time_constant_s, worst.time_constant_exact_s
     digits = 3 if _seconds(hand) != _seconds(exact) else 5
-    return (
-        f"exact time constants: {worst.title} {engineering(hand, 's', digits)} by hand, "
-        f"{engineering(exact, 's', digits)} exact"
-    )
+    return f"{worst.title} {engineering(hand, 's', digits)} by hand, {engineering(exact, 's', digits)} exact"
 
 
 def _highest_capacitor(rows: list[LowerRow]) -> str:
