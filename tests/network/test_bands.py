@@ -273,3 +273,19 @@ def test_an_inductor_in_series_with_an_open_capacitor_is_a_short() -> None:
     )
     bands = classify(network, find_midband(network))
     assert (bands.class_of["LP"], bands.class_of["CP"]) == ("short", "open")
+
+
+def test_what_rounding_leaves_far_beyond_all_poles_decides_nothing() -> None:
+    """287 µF with nothing behind them leave exactly nothing of 17 MΩ at 10⁴ times the highest pole."""
+    parts = [
+        voltage_source("VS", "s", "0", 1.0),
+        resistance("R1", "s", "a", 1e3),
+        capacitance("C1", "a", "0", 1e-12),
+        transconductance("G1", ("0", "x"), ("a", "0"), 0.0658),
+        resistance("R2", "x", "0", 1.0 / 5.919102031122334e-08),
+        capacitance("C2", "x", "out", 0.00028659791627819853),
+    ]
+    network = Network.from_parts(parts, output=Port("out"))
+    bands = classify(network, find_midband(network))
+    assert bands.class_of["C1"] == "open"
+    assert bands.sound

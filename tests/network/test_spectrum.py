@@ -9,7 +9,16 @@ from scipy.linalg import eig
 
 import amplifiers
 from strategies import networks
-from tauledger.devices.parts import Part, capacitance, inductance, resistance, transconductance
+from tauledger.circuit import Port
+from tauledger.devices.parts import (
+    Part,
+    capacitance,
+    current_gain,
+    inductance,
+    resistance,
+    transconductance,
+    voltage_source,
+)
 from tauledger.network.assemble import Network
 from tauledger.network.bands import classify, find_midband
 from tauledger.network.solve import Complex, Real, on_axis, response
@@ -186,3 +195,24 @@ def test_a_shift_at_which_rounding_leaves_nothing_of_g_is_taken_elsewhere() -> N
         np.linalg.inv(g + 2.0**60 * c)
     assert len(natural_frequencies(g, c, 2.0**55, 2.0**65)) == 0
     assert natural_frequencies(g, c, 0.1, 10.0) == pytest.approx([-0.5], rel=1e-9)
+
+
+def test_zeros_at_the_origin_are_no_more_than_unknowns_where_rounding_alone_arrives_there() -> None:
+    """A servo of its own hangs at the output: far below its pole nothing but rounding is left of H."""
+    parts = [
+        voltage_source("VIN", "in", "0", 1.0),
+        voltage_source("VS", "in", "n3"),
+        resistance("R2", "n3", "0", 1.0 / 0.002374890151952392),
+        current_gain("F3", "n2", "0", -15.7, "VS"),
+        transconductance("G6", ("n4", "0"), ("n2", "0"), 0.33456583436622833),
+        voltage_source("VS9", "n4", "n6"),
+        resistance("R10", "n6", "0", 1.0 / 0.026111319932162574),
+        inductance("L17", "n7", "n8", 8666.81171769875),
+        capacitance("C18", "n8", "0", 306403.75626359106),
+        voltage_source("VO19", "n7", "n9"),
+        resistance("R20", "n9", "0", 1.0 / 0.009493847768096432),
+        capacitance("XC1", "n9", "n2", 1.578873105317868e-13),
+    ]
+    network = Network.from_parts(parts, output=Port("n7"))
+    poles = pole_frequencies(network)
+    assert len(zero_frequencies(network, poles)) <= len(poles)

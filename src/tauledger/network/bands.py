@@ -29,6 +29,7 @@ SHORT_ABOVE = 1.0 / np.sqrt(2.0)
 TUNED_ABOVE = 1.3
 GAIN_TOLERANCE = 0.02
 BEYOND_ALL_POLES = 1e4
+NEARER = (1.0, 0.7, 0.3, 0.1, 0.01)
 
 
 class Bands(Struct, frozen=True):
@@ -240,8 +241,8 @@ def _ratios(network: Network, frequency_hz: float) -> dict[str, float]:
     value = dict(zip(terms.names, terms.value, strict=True))
     s = 2.0 * np.pi * frequency_hz
     seen = dict(zip(terms.names, s * np.abs(_immittance(network, 1j * s, terms)), strict=True))
-    beyond = BEYOND_ALL_POLES * max(float(np.abs(pole_frequencies(network)).max()), s)
-    first = dict(zip(terms.names, beyond * np.abs(_immittance(network, beyond, terms)), strict=True))
+    beyond, immittance = _beyond_all_poles(network, s, terms)
+    first = dict(zip(terms.names, beyond * np.abs(immittance), strict=True))
     fixed = joined_nodes(network, [part for part in network.parts if part.kind == "voltage source"])
     idle = {part.name for part in parts if part.value == 0.0 or fixed[part.nodes[0]] == fixed[part.nodes[1]]}
     tied = _coupled(network)
@@ -294,6 +295,22 @@ def _bridged_by_the_drive(network: Network, acting: list[Part]) -> set[str]:
         else:
             wires.append(part)
     return bridged
+
+
+def _beyond_all_poles(network: Network, s: float, terms: Reactances) -> tuple[float, Complex]:
+    """Give a real s in rad/s far beyond all poles and mid-band, and the immittances there, (m,).
+
+    Rounding there can leave exactly nothing of what holds a node: then it is taken nearer.
+    Raises NetworkError where the network has no unique solution at any of them.
+    """
+    highest = max(float(np.abs(pole_frequencies(network)).max()), s)
+    for nearer in NEARER[:-1]:
+        try:
+            return BEYOND_ALL_POLES * nearer * highest, _immittance(network, BEYOND_ALL_POLES * nearer * highest, terms)
+        except NetworkError:
+            continue
+    beyond = BEYOND_ALL_POLES * NEARER[-1] * highest
+    return beyond, _immittance(network, beyond, terms)
 
 
 def _immittance(network: Network, s: complex, terms: Reactances) -> Complex:
