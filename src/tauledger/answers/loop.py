@@ -16,6 +16,7 @@ from msgspec.structs import replace
 from tauledger.answers.answer import Subject, restore
 from tauledger.answers.double_injection import injected_ratio
 from tauledger.answers.loop_places import Place, closing_source, find_places, input_source, named_place
+from tauledger.answers.loop_says import NO_LOOP, says, why
 from tauledger.answers.macromodel import amplifier, noise_gain, where_noise_gain_tells
 from tauledger.compose.setting import unit_of
 from tauledger.errors import NetworkError
@@ -30,15 +31,13 @@ from tauledger.network.loop_shape import (
     loop_grid,
     loop_shape,
     margins_near,
-    opposes,
     single_frequency,
     turn_near,
 )
-from tauledger.network.return_ratio import Opening, asymptotic, checked, phase_of_delays, return_ratio
+from tauledger.network.return_ratio import Opening, asymptotic, checked, return_ratio
 from tauledger.network.solve import Real, on_axis, response
 from tauledger.network.spectrum import pole_frequencies
 from tauledger.numbers import Numbers
-from tauledger.quantity import engineering
 from tauledger.record import (
     AmplifierFacts,
     LoopCurve,
@@ -53,12 +52,7 @@ from tauledger.record import (
 AROUND = np.array([0.97, 0.985, 1.0, 1.015, 1.03])
 CHECKED_AT = np.array([0.1, 1.0, 10.0])
 CURVE_POINTS = 240
-WORTH_TELLING = 0.02
 OPEN_BELOW = 1e4
-NO_LOOP = 1e-9
-REAL_DEG = 179.0
-# A phase that is not told from that of one pole.
-QUARTER_TURN_DEG, FEW_DEG = 0.5, 2.0
 # T by hand and T at the wire are the same loop, or one of them counts others too.
 SAME_LOOP = 0.1
 COARSE = 4
@@ -142,7 +136,7 @@ def _loop(found: Review, subject: Subject, place: Place, *, alone: bool) -> tupl
     tells = place.found or place.amplifier is not None or opening.kind == "wire"
     if not several and tells and abs(t) > NO_LOOP:
         facts = _with_estimates(facts, found, numbers, place, shape)
-    return replace(facts, says=_says(facts, place, shape)), _curve(place, shape)
+    return replace(facts, says=says(facts, place, shape)), _curve(place, shape)
 
 
 def _reference(numbers: Numbers, opening: Opening, lowest_hz: float) -> float:
@@ -295,97 +289,13 @@ def _with_estimates(facts: LoopFacts, found: Review, numbers: Numbers, place: Pl
         steps.append(("ideal gain alone", ideal))
     steps.append(("closed loop, exact", high.exact_hz))
     estimates = tuple(LoopEstimate(name, hz, None if hz is None else hz / reference - 1.0) for name, hz in steps)
-    return replace(facts, estimates=estimates, why=_why(facts, place, shape, (first, loop, ideal, high.exact_hz)))
+    return replace(facts, estimates=estimates, why=why(facts, place, shape, (first, loop, ideal, high.exact_hz)))
 
 
 def _one_loop(facts: LoopFacts) -> bool:
     """Whether T₀ by hand is that of the place itself, and not of all loops through one transistor."""
     exact, own = facts.closing_return_ratio, facts.return_ratio_real
     return facts.kind == "source" or (exact is not None and abs(exact - own) <= SAME_LOOP * abs(own))
-
-
-def _says(facts: LoopFacts, place: Place, shape: LoopShape) -> tuple[str, ...]:
-    """Say what this T is where a reader may take it for another one."""
-    told = []
-    t = shape.at_reference
-    if facts.kind == "wire" and abs(t) <= NO_LOOP:
-        return ("no loop through this wire: nothing comes back but rounding",)
-    if t and not opposes(t):
-        angle = float(np.angle(t, deg=True))
-        size = "negative" if abs(angle) > REAL_DEG else f"at {angle:.0f}°"
-        told.append(f"T is {size} at mid-band: what comes back helps, positive feedback")
-    if facts.crossover_hz is None:
-        told.append("|T| does not fall through 1 above mid-band")
-    if facts.further_hz:
-        several = ", ".join(
-            f"{engineering(one.hz, 'Hz', 4)} ({'falls' if one.falling else 'rises'}, {one.phase_margin_deg:.1f}°)"
-            for one in shape.above
-        )
-        told.append(f"|T| = 1 several times: {several}; the fall with the least margin stands above")
-    if not facts.flat and t:
-        told.append("T is not flat between mid-band and its edge: edge of T · (1 + T) does not hold, and is not given")
-    if facts.kind == "admittance":
-        told.append(
-            "the return ratio of an admittance: A0 is the gain with the element taken out, A∞ with a short in its "
-            "place; 1 + T is what it does to the network, not what comes back round a loop"
-        )
-    elif facts.kind == "source" and place.device:
-        told.append(
-            f"it counts every loop through {place.device}, its own emitter or source resistor and what bridges it "
-            f"included; no wire carries it alone; --loop {place.device}.{place.control} is what ngspice tells there"
-        )
-    elif facts.kind == "wire" and not facts.found:
-        told.append("double injection: of what passes the wire both ways T is the part that is not reciprocal")
-    return tuple(told)
-
-
-def _why(
-    facts: LoopFacts, place: Place, shape: LoopShape, steps: tuple[float | None, float | None, float | None, float]
-) -> tuple[str, ...]:
-    """Say what each step from one pole to the closed loop rests on, where it moves by more than 2 %."""
-    first, loop, ideal, exact = steps
-    told = []
-    nearer = ideal is not None and (loop is None or abs(ideal / exact - 1.0) < abs(loop / exact - 1.0))
-    if ideal is not None and nearer and ideal < 0.5 * (first or facts.crossover_hz or math.inf):
-        return ("elements around the amplifier set f_H: with T → ∞ the gain would fall there by itself",)
-    left = _bandwidth_left(facts)
-    if left is not None and left < 1.0 - WORTH_TELLING:
-        told.append(f"what loads the amplifier on the board leaves {100.0 * left:.0f} % of its gain-bandwidth product")
-    if loop is not None and (first is None or abs(loop / first - 1.0) > WORTH_TELLING):
-        told += _not_one_pole(place, shape)
-    if loop is not None and abs(exact / loop - 1.0) > WORTH_TELLING:
-        if ideal is not None and ideal < 4.0 * exact:
-            told.append(
-                f"the ideal gain falls too, 3 dB at {engineering(ideal, 'Hz', 4)}: what bridges the amplifier, source "
-                "and load"
-            )
-        else:
-            told.append("what the loop does not hold adds poles and zeros of its own: source, load, feedthrough")
-    return tuple(told)
-
-
-def _bandwidth_left(facts: LoopFacts) -> float | None:
-    """Give what the board leaves of the gain of a one-pole amplifier at |T| = 1: noise gain over its own gain there."""
-    own, hz = facts.amplifier, facts.crossover_hz
-    if facts.noise_gain_edge_hz is None or own is None or hz is None or facts.noise_gain is None or own.loaded:
-        return None
-    if own.open_loop_gain is None or own.first_pole_hz is None:
-        return None
-    return facts.noise_gain * math.hypot(1.0, hz / own.first_pole_hz) / abs(own.open_loop_gain)
-
-
-def _not_one_pole(place: Place, shape: LoopShape) -> list[str]:
-    """Say what makes the phase at |T| = 1 another one than that of one pole: a zero, the delay of a line, a pole."""
-    crossover = shape.crossover
-    if crossover is None or abs(crossover.angle_deg + 90.0) < (QUARTER_TURN_DEG if shape.flat else FEW_DEG):
-        return []
-    lag = crossover.angle_deg
-    if lag > -90.0:
-        more = "a zero lifts it"
-    else:
-        late = -phase_of_delays(place.opening, crossover.hz)
-        more = "a line delays it" if late > 0.5 * (-90.0 - lag) else "a second pole is near"
-    return [f"T has not one pole alone: {more}, where |T| = 1 its phase is {lag:.0f}° instead of -90°"]
 
 
 def _curve(place: Place, shape: LoopShape) -> LoopCurve:
