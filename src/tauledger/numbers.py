@@ -88,8 +88,8 @@ def solve(
 
         linearised = fold_instances(circuit, linearised, fold)
     network = Network.from_parts(linearised.parts, output=circuit.output)
-    numbers = solve_network(network, devices=linearised.devices, midband_hz=midband_hz)
     asked = ac_range(netlist)
+    numbers = solve_network(network, devices=linearised.devices, midband_hz=midband_hz, within_hz=asked)
     grid = _sweep_grid(numbers, asked)
     simulated = simulate(engine.sweep, grid, midband=numbers.midband, ripple_hz=_ripple_grids(numbers, grid))
     swept = simulated.all_of_it
@@ -111,9 +111,16 @@ def linearised_at(netlist: Netlist, circuit: Circuit, bias: Bias) -> Linearised:
         raise at_element(netlist, circuit, error) from error
 
 
-def solve_network(network: Network, *, devices: tuple[Device, ...] = (), midband_hz: float | None = None) -> Numbers:
+def solve_network(
+    network: Network,
+    *,
+    devices: tuple[Device, ...] = (),
+    midband_hz: float | None = None,
+    within_hz: tuple[float, float] | None = None,
+) -> Numbers:
     """Give the exact numbers of a network alone; nothing is simulated.
 
+    within_hz: the range in Hz that is wanted; mid-band is looked for there first.
     Raises NetworkError where the network has no unique solution, InputError where nothing but a line holds a node.
     """
     if network.lines:
@@ -124,7 +131,7 @@ def solve_network(network: Network, *, devices: tuple[Device, ...] = (), midband
         from tauledger.network.transformers import drawn_out
 
         network = drawn_out(network)
-    midband = find_midband(network, at_hz=midband_hz)
+    midband = find_midband(network, at_hz=midband_hz, within_hz=within_hz)
     return Numbers(
         network=network,
         midband=midband,

@@ -9,7 +9,15 @@ from hypothesis import given, settings
 import amplifiers
 from strategies import DIRECT, EVERYTHING, networks
 from tauledger.circuit import Port
-from tauledger.devices.parts import capacitance, inductance, resistance, transconductance, voltage_source
+from tauledger.devices.parts import (
+    capacitance,
+    inductance,
+    line,
+    resistance,
+    transconductance,
+    voltage_gain,
+    voltage_source,
+)
 from tauledger.errors import InputError
 from tauledger.network.assemble import Network
 from tauledger.network.midband import find_midband
@@ -191,3 +199,59 @@ def test_what_leaks_past_a_narrow_band_is_no_mid_band() -> None:
     midband = find_midband(network)
     assert not midband.plateau
     assert 1e3 < midband.frequency_hz < 1e4
+
+
+def test_a_plateau_below_a_zero_that_lies_below_all_poles_is_seen() -> None:
+    # 10 kΩ bridged by 1 nF onto 1 Ω: a zero at 15.9 kHz, the pole at 159 MHz
+    network = amplifiers.network(
+        resistance("R1", "in", "out", 10e3), capacitance("C1", "in", "out", 1e-9), resistance("R2", "out", "0", 1.0)
+    )
+    assert find_midband(network).from_hz is not None
+    chosen = find_midband(network, at_hz=10.0)
+    assert chosen.from_hz == 0.0
+    assert chosen.to_hz is not None
+    assert chosen.to_hz < 15.9e3
+
+
+def stub_beside(ohm: float) -> Network:
+    """A shorted line of 2.5 ns across a divider: resonances of one height at 100 MHz, 300 MHz and so on."""
+    return amplifiers.network(
+        resistance("RS", "in", "out", ohm),
+        line("T1", ("out", "0", "0", "0"), 2.5e-9, 75.0),
+        resistance("RL", "out", "0", 300.0),
+    )
+
+
+def test_of_equal_resonances_the_lowest_is_the_reference() -> None:
+    for within in (None, (1e6, 1e9)):
+        found = find_midband(stub_beside(50.0), within_hz=within)
+        assert found.frequency_hz == pytest.approx(100e6, rel=1e-6)
+        assert found.maximum
+
+
+def test_a_maximum_in_the_range_that_is_wanted_goes_before_one_outside() -> None:
+    found = find_midband(stub_beside(50.0), within_hz=(200e6, 400e6))
+    assert found.frequency_hz == pytest.approx(300e6, rel=1e-6)
+
+
+def two_bands() -> Network:
+    """A low-pass to 1.6 kHz of gain 1/2, and beside it a way of gain 3 from 16 MHz on without end."""
+    return amplifiers.network(
+        resistance("R1", "in", "a", 1e3),
+        resistance("R2", "a", "0", 1e3),
+        capacitance("C1", "a", "0", 200e-9),
+        voltage_gain("E1", ("b", "0"), ("a", "0"), 1.0),
+        capacitance("C2", "in", "c", 10e-12),
+        resistance("R3", "c", "0", 1e3),
+        voltage_gain("E2", ("out", "b"), ("c", "0"), 3.0),
+    )
+
+
+@pytest.mark.parametrize(("within", "gain", "at_dc"), [((1.0, 100e3), 0.5, True), ((1e6, 1e9), 3.0, False)])
+def test_a_plateau_in_the_range_that_is_wanted_goes_before_one_outside(
+    within: tuple[float, float], gain: float, at_dc: bool
+) -> None:
+    found = find_midband(two_bands(), within_hz=within)
+    assert abs(found.gain) == pytest.approx(gain, rel=1e-2)
+    assert found.reaches_dc is at_dc
+    assert found.frequency_hz <= 10.0 * within[1]

@@ -55,7 +55,8 @@ def _port(network: Network, circuit: Circuit, output: str) -> Port:
 def _row(subject: Subject, circuit: Circuit, port: Port) -> OutputRow:
     numbers = subject.numbers
     network = Network.from_parts(numbers.network.parts, output=port, drive=numbers.network.amplitudes)
-    midband = find_midband(network, at_hz=numbers.midband.frequency_hz if numbers.midband_chosen else None)
+    at_hz = numbers.midband.frequency_hz if numbers.midband_chosen else None
+    midband = find_midband(network, at_hz=at_hz, within_hz=numbers.midband.within_hz)
     largest = np.abs(solve(network, on_axis(midband.frequency_hz)).x).max()
     if abs(midband.gain) <= NOTHING * largest:
         raise InputError(f"--output {port}: the drive does not reach it", "leave it out: what is there is rounding")

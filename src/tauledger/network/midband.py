@@ -20,6 +20,12 @@ SAME_GAIN = 10.0 ** (-3.0 / 20.0)
 PEAK = 1.01
 POINTS_PER_DECADE = 40
 UPHILL_POINTS = 200
+# A sweep seldom begins and ends where the band does.
+AROUND = 10.0
+# Maxima of a line repeat themselves; the scan's points are that far off their tops, and so many are looked at.
+SAME_TOP = 0.9
+SAME_HEIGHT = 1.0 - 1e-3
+MOST_TOPS = 10
 MARGIN = 1e3
 CONSTANT_RANGE_HZ = (1.0, 10.0)
 NO_SIGNAL = 1e-14
@@ -37,6 +43,7 @@ class MidBand(Struct, frozen=True):
     aids: names of measuring aids (aids.py), which act below floor_hz alone; nothing below that belongs to the
     amplifier. A plateau that reaches down to them reaches DC: from_hz is 0 and frequency_hz is floor_hz.
     maximum: |H| has its maximum there, and no plateau; in a changed network the reference is where that has moved.
+    within_hz: the range in which it was looked for first.
     """
 
     frequency_hz: float
@@ -46,6 +53,7 @@ class MidBand(Struct, frozen=True):
     aids: tuple[str, ...] = ()
     floor_hz: float = 0.0
     maximum: bool = False
+    within_hz: tuple[float, float] | None = None
 
     @property
     def reaches_dc(self) -> bool:
@@ -86,14 +94,24 @@ class _Plateau(Struct, frozen=True):
             return float("inf")
         return float(np.log10(self.to_hz / self.from_hz))
 
+    def decades_in(self, low_hz: float, high_hz: float) -> float:
+        """Give how many decades of it lie in this range, in Hz; 0 where none does."""
+        low, high = max(self.from_hz, low_hz), min(self.to_hz, high_hz)
+        return float(np.log10(high / low)) if high > low > 0.0 else 0.0
 
-def find_midband(network: Network, *, at_hz: float | None = None) -> MidBand:
+
+def find_midband(
+    network: Network, *, at_hz: float | None = None, within_hz: tuple[float, float] | None = None
+) -> MidBand:
     """Find the plateau of highest gain (|slope| ≤ 2 dB/decade over at least half a decade) and its reference.
 
     at_hz: take this frequency instead; its plateau's extent is given where it lies on one.
+    within_hz: what is wanted of the netlist. A plateau of which half a decade lies there goes before all others, then a
+    maximum there, then a plateau up to a decade beside it.
     Among plateaus within 3 dB of the highest gain the widest is taken. The reference is 0 where that plateau reaches
     DC, else the stationary point of |H| nearest its middle, so that it does not move to first order (where |H| has none
-    but a peak at the plateau's end, the flattest point); without a plateau it is the maximum of |H|.
+    but a peak at the plateau's end, the flattest point); without a plateau it is the maximum of |H|, of equal ones the
+    lowest.
     A plateau more than 20 dB below the highest gain (40 dB where a resonance makes that) is what leaks past the
     amplifier, no mid-band. Measuring aids are looked past.
     Raises InputError where at_hz is negative or beyond 1 THz, and where no signal passes there or anywhere;
@@ -101,8 +119,8 @@ def find_midband(network: Network, *, at_hz: float | None = None) -> MidBand:
     """
     aids = measuring_aids(network)
     if aids is None or (at_hz is not None and 0.0 < at_hz < aids.lowest_hz / MARGIN):
-        return _find(network, at_hz)
-    found = _find(aids.ideal, at_hz)
+        return _find(network, at_hz, within_hz)
+    found = _find(aids.ideal, at_hz, within_hz)
     return _beside(network, aids, found)
 
 
@@ -114,25 +132,80 @@ def _beside(network: Network, aids: MeasuringAids, found: MidBand) -> MidBand:
     return replace(found, frequency_hz=at_hz, gain=gain, aids=aids.names, floor_hz=floor_hz)
 
 
-def _find(network: Network, at_hz: float | None) -> MidBand:
+def _find(network: Network, at_hz: float | None, within_hz: tuple[float, float] | None) -> MidBand:
     scan = _scan(network)
     plateaus = _plateaus(network, scan)
     if at_hz is not None:
-        return _at(network, at_hz, plateaus)
-    if plateaus:
-        highest = max(plateau.gain for plateau in plateaus)
-        near = [plateau for plateau in plateaus if plateau.gain >= highest * SAME_GAIN]
-        # two plateaus without end whose gains differ by rounding alone: the lower one is what a reader expects
-        best = max(near, key=lambda plateau: (plateau.decades, float(f"{plateau.gain:.6g}"), -plateau.from_hz))
-        frequency = 0.0 if best.from_hz == 0.0 and _direct(network) else _reference(network, scan, best)
-        return MidBand(frequency, best.from_hz, best.to_hz, complex(response(network, np.array([frequency]))[0]))
-    peak = int(np.argmax(scan.magnitude))
-    frequency = float(scan.frequency_hz[peak])
-    inside = 0 < peak < len(scan.frequency_hz) - 1
+        found: MidBand | None = _at(network, at_hz, plateaus)
+    else:
+        found = None if within_hz is None else _find_within(network, scan, plateaus, *within_hz)
+        found = found or _find_anywhere(network, scan, plateaus)
+    return replace(found, within_hz=within_hz)
+
+
+def _find_within(
+    network: Network, scan: _Scan, plateaus: list[_Plateau], low_hz: float, high_hz: float
+) -> MidBand | None:
+    """Find a plateau in this range, a maximum in it, or a plateau a decade beside it; None where there is neither."""
+    around = (low_hz / AROUND, high_hz * AROUND)
+    near = _no_leaks(scan, plateaus, *around)
+    tops = _tops(network, scan, low_hz, high_hz)
+    under = [plateau for plateau in near if any(plateau.from_hz <= top <= plateau.to_hz for top in tops)]
+    inside = [plateau for plateau in near if plateau.decades_in(low_hz, high_hz) >= PLATEAU_DECADES] or under
     if inside:
-        frequency = _bisect(network, float(scan.frequency_hz[peak - 1]), float(scan.frequency_hz[peak + 1]))
-    gain = complex(response(network, np.array([frequency]))[0])
-    return MidBand(frequency, None, None, gain, maximum=inside)
+        return _on_plateau(network, scan, inside, around)
+    if tops:
+        return _at_maximum(network, tops[0])
+    beside = [plateau for plateau in near if plateau.decades_in(*around) >= PLATEAU_DECADES]
+    return _on_plateau(network, scan, beside, around) if beside else None
+
+
+def _find_anywhere(network: Network, scan: _Scan, plateaus: list[_Plateau]) -> MidBand:
+    everywhere = (0.0, float("inf"))
+    near = _no_leaks(scan, plateaus, *everywhere)
+    if near:
+        return _on_plateau(network, scan, near, everywhere)
+    tops = _tops(network, scan, *everywhere)
+    if tops:
+        return _at_maximum(network, tops[0])
+    frequency = float(scan.frequency_hz[int(np.argmax(scan.magnitude))])
+    return MidBand(frequency, None, None, complex(response(network, np.array([frequency]))[0]))
+
+
+def _on_plateau(network: Network, scan: _Scan, plateaus: list[_Plateau], around: tuple[float, float]) -> MidBand:
+    """Take the widest of those within 3 dB of the highest; the reference lies in this range where the plateau does."""
+    highest = max(plateau.gain for plateau in plateaus)
+    near = [plateau for plateau in plateaus if plateau.gain >= highest * SAME_GAIN]
+    # two plateaus without end whose gains differ by rounding alone: the lower one is what a reader expects
+    best = max(near, key=lambda plateau: (plateau.decades, float(f"{plateau.gain:.6g}"), -plateau.from_hz))
+    frequency = 0.0 if best.from_hz == 0.0 and _direct(network) else _reference(network, scan, best.first, best.last)
+    if frequency and not around[0] <= frequency <= around[1]:
+        points = np.arange(best.first, best.last + 1)
+        inside = points[(scan.frequency_hz[points] >= around[0]) & (scan.frequency_hz[points] <= around[1])]
+        if len(inside):
+            frequency = _reference(network, scan, int(inside[0]), int(inside[-1]))
+    return MidBand(frequency, best.from_hz, best.to_hz, complex(response(network, np.array([frequency]))[0]))
+
+
+def _at_maximum(network: Network, hz: float) -> MidBand:
+    return MidBand(hz, None, None, complex(response(network, np.array([hz]))[0]), maximum=True)
+
+
+def _tops(network: Network, scan: _Scan, low_hz: float, high_hz: float) -> list[float]:
+    """Give where |H| is highest in this range, in Hz, of equal maxima the lowest; nothing where that is at its end."""
+    inside = np.flatnonzero((scan.frequency_hz >= low_hz) & (scan.frequency_hz <= high_hz))
+    if len(inside) < 3:
+        return []
+    gain = scan.magnitude[inside]
+    if gain.argmax() in (0, len(gain) - 1):
+        return []
+    peaks = 1 + np.flatnonzero(
+        (gain[1:-1] >= gain[:-2]) & (gain[1:-1] > gain[2:]) & (gain[1:-1] >= SAME_TOP * gain.max())
+    )
+    hz = scan.frequency_hz[inside]
+    exact = [_bisect(network, float(hz[k - 1]), float(hz[k + 1])) for k in peaks[:MOST_TOPS]]
+    heights = np.abs(response(network, np.array(exact)))
+    return [exact[int(np.argmax(heights >= SAME_HEIGHT * heights.max()))]]
 
 
 def in_changed(network: Network, midband: MidBand) -> MidBand:
@@ -162,7 +235,8 @@ def frequency_range(poles: Complex, zeros: Complex) -> tuple[float, float] | Non
     p, z = np.abs(poles[np.abs(poles) > 0.0]), np.abs(zeros[np.abs(zeros) > 0.0])
     if not len(p):
         return None
-    lowest, highest = float(p.min()), float(max(p.max(), z.max(initial=0.0)))
+    # a zero may lie far below all poles, and a plateau below it
+    lowest, highest = float(min(p.min(), z.min(initial=np.inf))), float(max(p.max(), z.max(initial=0.0)))
     return lowest / (2.0 * np.pi) / MARGIN, highest / (2.0 * np.pi) * MARGIN
 
 
@@ -202,8 +276,15 @@ def _plateaus(network: Network, scan: _Scan) -> list[_Plateau]:
     flat = np.concatenate([[False], np.abs(scan.slope) <= FLAT_SLOPE, [False]])
     starts, stops = np.flatnonzero(~flat[:-1] & flat[1:]), np.flatnonzero(flat[:-1] & ~flat[1:]) - 1
     found = [_plateau(network, scan, int(first), int(last)) for first, last in zip(starts, stops, strict=True)]
-    floor = float(scan.magnitude.max()) * (FAR_BELOW_A_RESONANCE if scan.resonant else FAR_BELOW)
-    return [plateau for plateau in found if plateau.decades >= PLATEAU_DECADES and plateau.gain >= floor]
+    return [plateau for plateau in found if plateau.decades >= PLATEAU_DECADES]
+
+
+def _no_leaks(scan: _Scan, plateaus: list[_Plateau], low_hz: float, high_hz: float) -> list[_Plateau]:
+    """Leave out the plateaus far below the highest gain in this range: what leaks past the amplifier, no mid-band."""
+    inside = (scan.frequency_hz >= low_hz) & (scan.frequency_hz <= high_hz)
+    highest = float(scan.magnitude.max(where=inside, initial=0.0))
+    floor = highest * (FAR_BELOW_A_RESONANCE if scan.resonant else FAR_BELOW)
+    return [plateau for plateau in plateaus if plateau.gain >= floor]
 
 
 def _plateau(network: Network, scan: _Scan, first: int, last: int) -> _Plateau:
@@ -246,9 +327,9 @@ def _reference_point(scan: _Scan, first: int, last: int) -> int:
     return first + flat
 
 
-def _reference(network: Network, scan: _Scan, plateau: _Plateau) -> float:
-    at = _reference_point(scan, plateau.first, plateau.last)
-    if at < plateau.last and scan.slope[at] > 0.0 >= scan.slope[at + 1]:
+def _reference(network: Network, scan: _Scan, first: int, last: int) -> float:
+    at = _reference_point(scan, first, last)
+    if at < last and scan.slope[at] > 0.0 >= scan.slope[at + 1]:
         return _bisect(network, float(scan.frequency_hz[at]), float(scan.frequency_hz[at + 1]))
     return float(scan.frequency_hz[at])
 
