@@ -198,9 +198,9 @@ def test_mutant_weight_one_for_decoupling(engine: Engine, monkeypatch: pytest.Mo
 
 def test_mutant_phase_margin_with_the_wrong_sign_of_the_phase(monkeypatch: pytest.MonkeyPatch) -> None:
     """180° − φ in place of 180° + φ: what poles and zeros use is not what the margin leaves."""
-    network, sound = network_of(TwoStages()), Angle.beyond_midband
+    network, sound = network_of(TwoStages()), Angle.along
     assert review_network(network).phase_budget is not None
-    monkeypatch.setattr(Angle, "beyond_midband", lambda angle, hz, h: -sound(angle, hz, h))
+    monkeypatch.setattr(Angle, "along", lambda angle, hz, h: -sound(angle, hz, h))
     with pytest.raises(NetworkError, match="degrees of poles and zeros add to the phase used"):
         review_network(network)
 
