@@ -338,3 +338,14 @@ def test_gain_times_f_high_far_from_unity_gain_is_no_figure() -> None:
     assert facts.gain_bandwidth_exact_hz > 3.0 * facts.exact_hz
     assert facts.hand_hz is None
     assert "gain · f_H" not in [cells[0] for cells in figures(facts)]
+
+
+def test_a_mirror_bridged_by_its_own_c_gd_is_no_compensated_stage_and_a_follower_hides_no_load(
+    engine: Engine, tmp_path: Path
+) -> None:
+    followed = OTA.replace("CL out 0 3p", "CX x 0 3p\nMF vdd x out vss mn w=40u l=1u\nIF out vss 100u\nCL out 0 0.2p")
+    followed = followed.replace("M2 out inn", "M2 x inn").replace("M4 out n1", "M4 x n1")
+    budget = budget_of(of_text(followed, engine, tmp_path))
+    assert budget.stage == "no compensated stage, the load at x makes the dominant pole"
+    assert "from x to the output" in budget.by_hand[0].values
+    assert budget.by_hand[0].hand == near(budget.by_hand[0].exact, rel=0.1)

@@ -31,6 +31,7 @@ from tauledger.hand.load_compensated import LoadedOutput, find_loaded_output
 from tauledger.hand.mirror import find_mirror, half_circuit
 from tauledger.hand.poles import HandPole
 from tauledger.hand.roots import OWNS, ExactRoot, HandRoot, belonging, hand_roots
+from tauledger.network.follower import polarity_offset_deg
 from tauledger.network.identities import check
 from tauledger.network.phase import PhaseUse, PhaseUsed, phase_identities, phase_used
 from tauledger.network.poles import Pole
@@ -58,14 +59,15 @@ def phase_budget(found: Review, subject: Subject) -> PhaseBudget | None:
     unity, numbers = found.f_unity, subject.numbers
     if unity is None or unity.exact_hz is None or unity.phase_margin_exact_deg is None or not numbers.trusted:
         return None
-    hz, margin = unity.exact_hz, unity.phase_margin_exact_deg
+    hz, margin = unity.margin_at_hz or unity.exact_hz, unity.phase_margin_exact_deg
+    offset = polarity_offset_deg(numbers.midband.gain) or 0.0
     mid = numbers.midband.frequency_hz
     used_deg = HALF_TURN_DEG - margin
-    used = phase_used(numbers.poles, midband_hz=mid, hz=hz, used_deg=used_deg)
+    used = phase_used(numbers.poles, midband_hz=mid, hz=hz, used_deg=used_deg, offset_deg=offset)
     check(phase_identities(used, used_deg, rational=_rational(numbers)))
     paper = paper_roots(subject)
     stage, by_hand = paper.stage, paper.roots
-    shown, rows = _rows(used, paper, subject.explanation.hand_poles, mid, hz)
+    shown, rows = _rows(used, paper, subject.explanation.hand_poles, hz)
     rows = _set_aside(rows, shown, _off_the_path(subject))
     rest = [one for one in (*used.poles, *used.zeros) if one not in shown]
     # what measuring aids make far below the band are poles and zeros too, which the map leaves out
@@ -77,8 +79,9 @@ def phase_budget(found: Review, subject: Subject) -> PhaseBudget | None:
         others=len(rest),
         others_deg=sum(one.degrees for one in rest) + of_aids,
         rest_deg=used.rest - of_aids,
+        midband_deg=used.before,
         stage=_stage_text(stage) if stage is not None and _makes_a_pole(rows) else _load_text(paper.load, rows),
-        by_hand=_steps(_single(paper, rows), by_hand, rows, hz, margin),
+        by_hand=_steps(_single(paper, rows), by_hand, rows, hz, margin) if hz == unity.exact_hz else (),
     )
 
 
@@ -158,7 +161,7 @@ def _resistances(hand: HandEstimate) -> Mapping[str, float]:
 
 
 def _rows(
-    used: PhaseUsed, paper: PaperRoots, two: Sequence[HandPole], mid_hz: float, hz: float
+    used: PhaseUsed, paper: PaperRoots, two: Sequence[HandPole], hz: float
 ) -> tuple[list[PhaseUse], tuple[PhaseRow, ...]]:
     """Give the roots that have a row of their own, and the rows, the lowest first."""
     seen = [
@@ -171,7 +174,13 @@ def _rows(
     ]
     seen.sort(key=lambda pair: (abs(pair[1].s), pair[1].kind))
     # the other half owns as much of a pole of both
-    formulas = belonging([root for _, root in seen], paper.roots, owns=OWNS / 2.0 if paper.halves else OWNS)
+    owns = OWNS / 2.0 if paper.halves else OWNS
+    roots = [root for _, root in seen]
+    formulas = belonging(roots, paper.roots, owns=owns)
+    if paper.stage is not None and not any(h.formula.name in DOMINANT for one in formulas.values() for h in one):
+        # a stage that does not make the dominant pole splits none
+        others = [root for root in paper.roots if root.of != "stage" or root.kind == "zero"]
+        formulas = belonging(roots, others, owns=owns)
     of_two = {one.pole: one for one in two if one.hz is not None}
     rows: list[PhaseRow] = []
     shown: list[PhaseUse] = []
@@ -181,9 +190,9 @@ def _rows(
             continue
         shown.append(one)
         if formula:
-            rows.append(_with_formula(one, root, formula, mid_hz, hz))
+            rows.append(_with_formula(one, root, formula, hz))
         elif root.kind == "pole" and not root.paired and root.s in of_two:
-            rows.append(_of_two_coefficients(one, root, of_two[root.s], mid_hz, hz))
+            rows.append(_of_two_coefficients(one, root, of_two[root.s], hz))
         else:
             rows.append(_bare(one, root))
     return shown, tuple(rows)
@@ -204,7 +213,7 @@ def _bare(one: PhaseUse, root: ExactRoot) -> PhaseRow:
     )
 
 
-def _with_formula(one: PhaseUse, root: ExactRoot, by_hand: tuple[HandRoot, ...], mid_hz: float, hz: float) -> PhaseRow:
+def _with_formula(one: PhaseUse, root: ExactRoot, by_hand: tuple[HandRoot, ...], hz: float) -> PhaseRow:
     bare = _bare(one, root)
     first = by_hand[0]
     alone = len(by_hand) == 1
@@ -217,19 +226,19 @@ def _with_formula(one: PhaseUse, root: ExactRoot, by_hand: tuple[HandRoot, ...],
         hand_formula=first.formula.written if alone else f"√({' · '.join(root.formula.name for root in by_hand)})",
         hand_values="; ".join(root.values for root in by_hand),
         hand_hz=hand_hz,
-        hand_deg=phase_used_deg(hz, poles, zeros) - phase_used_deg(mid_hz, poles, zeros),
+        hand_deg=phase_used_deg(hz, poles, zeros) - phase_used_deg(one.start_hz, poles, zeros),
         difference=abs(hand_hz) / root.hz - 1.0,
     )
 
 
-def _of_two_coefficients(one: PhaseUse, root: ExactRoot, by_hand: HandPole, mid_hz: float, hz: float) -> PhaseRow:
+def _of_two_coefficients(one: PhaseUse, root: ExactRoot, by_hand: HandPole, hz: float) -> PhaseRow:
     assert by_hand.hz is not None
     return replace(
         _bare(one, root),
         # "1/(2π·b1), -20 % off": how far it is off has its own column
         hand_formula=by_hand.formula.partition(", ")[0],
         hand_hz=by_hand.hz,
-        hand_deg=phase_used_deg(hz, [by_hand.hz], []) - phase_used_deg(mid_hz, [by_hand.hz], []),
+        hand_deg=phase_used_deg(hz, [by_hand.hz], []) - phase_used_deg(one.start_hz, [by_hand.hz], []),
         difference=by_hand.hz / root.hz - 1.0,
     )
 

@@ -29,6 +29,8 @@ AS_ONE_DEVICE = 0.01
 AS_INPUT_DEVICE = 0.05
 # The load's own R2·(C_c + C_L) is left out on paper below this part of the whole constant.
 LOAD_COUNTS = 0.03
+# Below this part of it the input makes no pole that counts: the load alone does.
+INPUT_COUNTS = 0.15
 
 
 class Places(Struct, frozen=True):
@@ -91,8 +93,17 @@ class CompensatedStage(Struct, frozen=True):
     @property
     def loaded(self) -> bool:
         """Whether R2·(C_c + C_L) counts in the dominant pole."""
-        load = self.r_2 * (self.across + self.c_l)
-        return load > LOAD_COUNTS * (self.r_1 * (self.c_1 + self.across * (1.0 + self.a_2)) + load)
+        return 1.0 - self._of_input > LOAD_COUNTS
+
+    @property
+    def compensates(self) -> bool:
+        """Whether the constant at the input is a good part of the whole."""
+        return self._of_input >= INPUT_COUNTS
+
+    @property
+    def _of_input(self) -> float:
+        at_input = self.r_1 * (self.c_1 + self.across * (1.0 + self.a_2))
+        return at_input / (at_input + self.r_2 * (self.across + self.c_l))
 
 
 class _Branch(Struct, frozen=True):
@@ -124,7 +135,7 @@ def find_compensated_stage(
     found = [
         stage
         for inverting in _inverting(circuit, places)
-        if (stage := _stage(circuit, places, inverting, resistance_ohm, response)) is not None
+        if (stage := _stage(circuit, places, inverting, resistance_ohm, response)) is not None and stage.compensates
     ]
     return min(found, key=dominant_hz, default=None)
 

@@ -7,7 +7,7 @@ from collections.abc import Mapping
 from msgspec import Struct
 
 from tauledger.circuit import GROUND
-from tauledger.hand.compensated import capacitors_at, farads_at, find_places, input_device
+from tauledger.hand.compensated import Places, capacitors_at, farads_at, find_places, input_device
 from tauledger.hand.compensation import load_pole_hz
 from tauledger.hand.equivalent import EquivalentCircuit
 from tauledger.hand.nodes import node_name
@@ -15,6 +15,8 @@ from tauledger.hand.nodes import node_name
 # So much of the dominant pole belongs to the capacitances at the output, or the load does not make it.
 MAKES_IT = 0.8
 FITS = 1.1
+# From the node to the output, with followers in between.
+PASSED_ON = (0.3, 1.2)
 
 
 class LoadedOutput(Struct, frozen=True):
@@ -38,28 +40,36 @@ class LoadedOutput(Struct, frozen=True):
 def find_loaded_output(
     circuit: EquivalentCircuit, response: complex, dominant_hz: float, owners: Mapping[str, float], *, halves: bool
 ) -> LoadedOutput | None:
-    """Find the load that makes the dominant pole; None where the capacitances at the output own less than 80 % of it.
+    """Find the node whose load makes the dominant pole, the output first, else one before a follower.
 
-    circuit: the hand circuit, of a balanced one its half. response: of the whole network. dominant_hz, owners: of the
-    dominant pole, exact.
+    None where the capacitances at no such node own 80 % of it. circuit: the hand circuit, of a balanced one its half.
+    response: of the whole network. dominant_hz, owners: of the dominant pole, exact.
     """
     places = find_places(circuit)
     live = [node for node in circuit.output_hand if node != GROUND]
     plus = next((node for node in live if node in circuit.row), None)
     if plus is None or (len(live) > 1 and not halves):
         return None
-    at = places.of(plus)
-    parts = frozenset(c.part for c in capacitors_at(circuit, places, at))
-    owned = sum(owners.get(part, 0.0) for part in parts) * (2.0 if halves else 1.0)
-    # a capacitor across the output belongs to both halves, and counted twice it is no less
-    if owned < MAKES_IT:
+    # the other half owns as much
+    owned = {part: share * (2.0 if halves else 1.0) for part, share in owners.items()}
+    for place in dict.fromkeys((places.of(plus), *places.members)):
+        found = _load_at(circuit, places, place, response)
+        if found is None or sum(owned.get(part, 0.0) for part in found.parts) < MAKES_IT:
+            continue
+        low, high = PASSED_ON
+        fits = 1.0 / FITS < load_pole_hz(found.r_out, found.c_l) / dominant_hz < FITS
+        if fits and (place == places.of(plus) or low <= found.between <= high):
+            return found
+    return None
+
+
+def _load_at(circuit: EquivalentCircuit, places: Places, place: str, response: complex) -> LoadedOutput | None:
+    r_out, c_l = circuit.z(place, place), farads_at(circuit, places, place)
+    reached = float(abs(circuit.voltage[circuit.row[place]]))
+    if r_out <= 0.0 or not c_l or not reached:
         return None
-    r_out, c_l = circuit.z(plus, plus), farads_at(circuit, places, at)
-    if r_out <= 0.0 or not c_l or not 1.0 / FITS < load_pole_hz(r_out, c_l) / dominant_hz < FITS:
-        return None
-    reached = abs(circuit.voltage[circuit.row[plus]])
-    if not reached:
-        return None
-    sent = float(reached) / r_out
-    gm_1, first = input_device(circuit, places, at, sent)
-    return LoadedOutput(node_name(circuit, at), r_out, c_l, gm_1, first, sent, parts, float(abs(response) / reached))
+    sent = reached / r_out
+    gm_1, first = input_device(circuit, places, place, sent)
+    parts = frozenset(c.part for c in capacitors_at(circuit, places, place))
+    between = float(abs(response)) / reached
+    return LoadedOutput(node_name(circuit, place), r_out, c_l, gm_1, first, sent, parts, between)
