@@ -11,6 +11,7 @@ from tauledger.asked import Asked
 from tauledger.engine.client import Engine
 from tauledger.pipeline import review
 from tauledger.record import LoopFacts, Review
+from tauledger.report.terminal import render
 
 AMPLIFIER = """.subckt amp p n o
 RIN p n 2meg
@@ -84,6 +85,25 @@ RE e 0 200
 .model qn npn(is=2e-15 bf=150 rb=100 cje=3p cjc=2p tf=300p)
 .model qp pnp(is=2e-15 bf=100 rb=100 cje=3p cjc=2p tf=500p)
 .ac dec 10 1k 100meg
+.print ac v(out)
+.end
+"""
+
+IN_SERIES = """River-level gauge, three transistors with feedback from emitter to emitter
+VCC vcc 0 12
+VIN s 0 DC 0.9 AC 1
+RS s b1 50
+Q1 c1 b1 e1 qn
+RC1 vcc c1 9k
+RE1 e1 0 100
+Q2 c2 c1 0 qn
+RC2 vcc c2 5k
+Q3 out c2 e3 qn
+RC3 vcc out 600
+RE2 e3 0 100
+RF e3 e1 640
+.model qn npn(is=2e-15 bf=150 rb=100 cje=1p cjc=0.5p tf=300p)
+.ac dec 10 1k 1g
 .print ac v(out)
 .end
 """
@@ -182,10 +202,18 @@ def test_a_wire_by_which_nothing_comes_back_has_no_loop_and_no_band_edge(engine:
     assert facts.estimates == ()
 
 
-def test_the_edge_of_one_loop_is_not_multiplied_by_t0_of_another(engine: Engine, tmp_path: Path) -> None:
-    facts = only(reviewed(FOLLOWED, engine, tmp_path))
-    assert facts.kind == "wire"
-    closing = facts.closing_return_ratio
+def test_t0_by_hand_and_the_edge_are_those_of_the_wire_that_is_cut(engine: Engine, tmp_path: Path) -> None:
+    """RE2 alone makes a loop through Q3 beside the one around all three: T at its gm is not T of the wire."""
+    found = reviewed(IN_SERIES, engine, tmp_path)
+    facts = only(found)
+    assert (facts.kind, facts.loop) == ("wire", "Q1.emitter")
+    t, closing = facts.return_ratio_real, facts.closing_return_ratio
     assert closing is not None
-    same = abs(closing - facts.return_ratio_real) <= 0.1 * facts.return_ratio_real
-    assert ("by hand, edge of T times 1 + T" in methods(facts)) <= same
+    assert abs(closing / t - 1.0) > 0.3
+    assert facts.hand_return_ratio == pytest.approx(t, rel=0.06)
+    assert facts.hand_open_edge_hz is not None
+    assert facts.open_edge_hz is not None
+    by_hand = next(one for one in facts.estimates if one.method == "by hand, edge of T times 1 + T")
+    assert by_hand.hz == pytest.approx(facts.open_edge_hz * (1.0 + t), rel=0.15)
+    page = " ".join(render(found, color=False, unicode=True).split())
+    assert "T0 = gm of" not in page

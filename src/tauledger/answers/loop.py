@@ -224,6 +224,10 @@ def _with_hand(facts: LoopFacts, subject: Subject, place: Place) -> LoopFacts:
     opened = open_loop(numbers.bands, numbers.devices, place.loop, facts.open_edge_hz)
     if opened is None or not 1.0 / NO_ESTIMATE < opened.edge_hz / facts.open_edge_hz < NO_ESTIMATE:
         return facts
+    if opened.t0 is not None:
+        # the same opening as that of T itself, and not every loop through one transistor
+        rows = tuple(LoopStageFacts(stage.node, float(stage.hand), float(stage.exact)) for stage in opened.stages)
+        facts = replace(facts, hand_return_ratio=float(opened.t0), hand_siemens=None, hand_stages=rows)
     nodes = tuple(LoopNodeFacts(one.node, float(one.ohm), float(one.farad), float(one.seconds)) for one in opened.nodes)
     return replace(facts, hand_open_edge_hz=float(opened.edge_hz), hand_open_nodes=nodes)
 
@@ -295,7 +299,11 @@ def _with_estimates(facts: LoopFacts, found: Review, numbers: Numbers, place: Pl
 def _one_loop(facts: LoopFacts) -> bool:
     """Whether T₀ by hand is that of the place itself, and not of all loops through one transistor."""
     exact, own = facts.closing_return_ratio, facts.return_ratio_real
-    return facts.kind == "source" or (exact is not None and abs(exact - own) <= SAME_LOOP * abs(own))
+    return (
+        facts.kind == "source"
+        or facts.hand_siemens is None
+        or (exact is not None and abs(exact - own) <= SAME_LOOP * abs(own))
+    )
 
 
 def _curve(place: Place, shape: LoopShape) -> LoopCurve:

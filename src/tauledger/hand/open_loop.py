@@ -1,4 +1,4 @@
-"""The band edge of T by hand: the loop cut at its wire, loaded there with what the wire led to, node by node.
+"""T₀ and the band edge of T by hand: the loop cut at its wire, loaded there with what the wire led to, node by node.
 
 The far end of the cut is driven, the near end has the input resistance and capacitance of what was behind it: then the
 loop is an amplifier without feedback, and its time constants are those of any other.
@@ -19,7 +19,9 @@ from tauledger.devices.family import Device, Terminal
 from tauledger.devices.parts import Part, capacitance, conductance, voltage_source
 from tauledger.errors import InputError, NetworkError
 from tauledger.hand.budget import signal_nodes
-from tauledger.hand.feedback import FoundLoop, classed_as
+from tauledger.hand.estimate import StageRow
+from tauledger.hand.feedback import FoundLoop, LoopStage, classed_as
+from tauledger.hand.stages import stage_rows
 from tauledger.network.assemble import assemble
 from tauledger.network.bands import Bands
 from tauledger.network.return_ratio import SERIES, at_wire
@@ -42,10 +44,16 @@ class OpenNode(Struct, frozen=True):
 
 
 class OpenLoop(Struct, frozen=True):
-    """The edge of T by hand in Hz, 1/(2π·Σ R·C), and the nodes that take at least 1 % of the sum, largest first."""
+    """The edge of T by hand in Hz, 1/(2π·Σ R·C), and the nodes that take at least 1 % of the sum, largest first.
+
+    stages: the gains from the driven end of the cut round to the loaded one, whose product is −t0; none where a rule is
+    missing, and t0 None.
+    """
 
     edge_hz: float
     nodes: tuple[OpenNode, ...]
+    stages: tuple[LoopStage, ...] = ()
+    t0: float | None = None
 
 
 def open_loop(closed: Bands, devices: tuple[Device, ...], loop: FoundLoop, edge_hz: float) -> OpenLoop | None:
@@ -72,6 +80,7 @@ def open_loop(closed: Bands, devices: tuple[Device, ...], loop: FoundLoop, edge_
         if bands is None:
             return None
         rows = [row for row in signal_nodes(bands, moved) if row.in_path and not row.second]
+        stages = _stages(stage_rows(bands, moved), loop.node)
     except (NetworkError, InputError):
         return None
     total = math.fsum(row.time_constant_s for row in rows)
@@ -83,7 +92,20 @@ def open_loop(closed: Bands, devices: tuple[Device, ...], loop: FoundLoop, edge_
         for row in ordered
         if abs(row.time_constant_s) >= COUNTS * total
     )
-    return OpenLoop(1.0 / (2.0 * math.pi * total), shown)
+    t0 = -math.prod(stage.hand for stage in stages) if stages else None
+    return OpenLoop(1.0 / (2.0 * math.pi * total), shown, stages, t0)
+
+
+def _stages(rows: tuple[StageRow, ...], node: str) -> tuple[LoopStage, ...]:
+    """Give the gains round to a node; none where one has no rule, or the way does not end there."""
+    if not rows or rows[-1].node != node:
+        return ()
+    stages = []
+    for row in rows:
+        if row.gain_hand is None or row.gain_exact is None:
+            return ()
+        stages.append(LoopStage(_called(row.node), row.title, row.gain_hand, row.gain_exact))
+    return tuple(stages)
 
 
 def _called(name: str) -> str:

@@ -56,7 +56,8 @@ class LoopFacts(Struct, frozen=True):
     an amplifier, noise_gain_edge_hz its gain-bandwidth product over that, where that is f_H: not_f_high says why not.
     further_hz: |T| = 1 above mid-band elsewhere; crossover_hz is then the fall with the least margin. flat: T is in
     phase at at_hz and does not rise before open_edge_hz, which is None else. hand_return_ratio: hand_siemens·Π hand of
-    hand_stages. hand_open_edge_hz: 1/(2π·Σ R·C) of the opened loop, hand_open_nodes those that take 1 % of it or more.
+    hand_stages; without hand_siemens −Π of the gains round the cut wire. hand_open_edge_hz: 1/(2π·Σ R·C) of the opened
+    loop, hand_open_nodes those that take 1 % of it or more.
     """
 
     loop: str

@@ -83,8 +83,12 @@ def closed_text(facts: LoopFacts) -> tuple[str, ...]:
 
 def hand_text(facts: LoopFacts) -> tuple[str, ...]:
     """Write T₀ as a product from node to node."""
-    if facts.hand_return_ratio is None or facts.hand_siemens is None:
+    if facts.hand_return_ratio is None:
         return ()
+    if facts.hand_siemens is None:
+        size = math.hypot(facts.return_ratio_real, facts.return_ratio_imag)
+        apart = move(facts.hand_return_ratio / math.copysign(size, facts.return_ratio_real) - 1.0)
+        return (f"T0 = {' · '.join(map(_factor, facts.hand_stages))} = {_plain(facts.hand_return_ratio)} ({apart})",)
     first, *others = facts.hand_stages
     device = facts.closing_source.removeprefix("gm of ")
     product = " · ".join((f"{number(abs(first.hand), 'Ω')} ({first.node})", *map(_factor, others)))
