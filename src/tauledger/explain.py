@@ -21,6 +21,7 @@ from tauledger.hand.at_edge import edge_factors
 from tauledger.hand.budget import part_resistances, signal_nodes
 from tauledger.hand.combine import Combined, combine_lower, combine_upper
 from tauledger.hand.effects import pole_effects
+from tauledger.hand.estimate import Edge as EdgeName
 from tauledger.hand.estimate import HandEstimate, InductorRow
 from tauledger.hand.halves import images
 from tauledger.hand.lower import lower_rows, nearest_zero_owner
@@ -48,8 +49,10 @@ from tauledger.network.shares import Shares, find_shares
 from tauledger.network.solve import Complex
 from tauledger.network.spectrum import pole_frequencies, zero_frequencies
 from tauledger.numbers import Numbers
+from tauledger.quantity import percent
 
 TEN_PERCENT_LESS = 0.9
+LINES_MATTER = 0.10
 
 
 class Explanation(Struct, frozen=True):
@@ -93,8 +96,9 @@ def explain(numbers: Numbers) -> Explanation:
     open_rows, short_rows, hand, upper, lower = None, None, None, None, None
     if worked:
         open_rows, short_rows = open_constants(bands), short_constants(bands)
+        left_out = _left_out(numbers, rest, {"f_high": shares_high, "f_low": shares_low})
         check((*open_identities(open_rows), *weight_identities(bands, open_rows), *short_identities(short_rows)))
-        hand, upper, lower = _by_hand(numbers, open_rows, short_rows, rest)
+        hand, upper, lower = _by_hand(numbers, open_rows, short_rows, rest, left_out)
     less = each_scaled(network, midband, edges, TEN_PERCENT_LESS)
     evidence = Evidence(
         bands=bands,
@@ -202,8 +206,37 @@ def _followed_to_hz(numbers: Numbers) -> float | None:
     return limit if limit is not None and limit < float(numbers.edges.frequency_hz[-1]) else None
 
 
+def _left_out(
+    numbers: Numbers, rest: EdgeFrequencies | None, shares: Mapping[EdgeName, Shares | None]
+) -> dict[EdgeName, str]:
+    """Say for each edge what lines do to it, where they have or move a tenth of it: no method has them."""
+    if rest is None:
+        return {}
+    lines = numbers.network.lines
+    names = f"{', '.join(line.owner for line in lines)}, {'a line' if len(lines) == 1 else 'lines'}"
+    edges, at_rest = numbers.edges, {"f_high": rest.f_high, "f_low": rest.f_low}
+    found: dict[EdgeName, str] = {}
+    for edge, known in shares.items():
+        of = edges.f_high if edge == "f_high" else edges.f_low
+        before = at_rest[edge]
+        if known is None or of is None or of.hz is None or before is None:
+            continue
+        share, moved = sum(known.parts[line.name] for line in lines), of.hz / before - 1.0
+        if max(abs(share), abs(moved)) >= LINES_MATTER:
+            has, moves = ("has", "moves") if len(lines) == 1 else ("have", "move")
+            found[edge] = (
+                f"{names}, {moves} it by {percent(moved)} and {has} a share of {percent(share).removeprefix('+')}, "
+                "which no time constant sees"
+            )
+    return found
+
+
 def _by_hand(
-    numbers: Numbers, constants: OpenConstants, shorts: ShortConstants, rest: EdgeFrequencies | None
+    numbers: Numbers,
+    constants: OpenConstants,
+    shorts: ShortConstants,
+    rest: EdgeFrequencies | None,
+    left_out: Mapping[EdgeName, str],
 ) -> tuple[HandEstimate, Combined, Combined]:
     bands, devices, edges = numbers.bands, numbers.devices, numbers.edges
     high, low = (edge.hz if edge is not None else None for edge in (edges.f_high, edges.f_low))
@@ -229,6 +262,7 @@ def _by_hand(
         lower_hz=low,
         upper_weighted_hz=weighted_upper(constants.weighted_sum_s),
         lower_weighted_hz=weighted_lower(capacitors),
+        left_out=left_out,
     )
     hand = HandEstimate(
         nodes=nodes,
@@ -258,7 +292,7 @@ def _by_hand(
         hand_f_high_hz=upper.lowest,
         hand_f_low_hz=lower.lowest,
         inductors=inductors,
-        no_method=none_recommended(estimates, upper, lower),
+        no_method=none_recommended(estimates, upper, lower, left_out),
     )
     return hand, upper, lower
 

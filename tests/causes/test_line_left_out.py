@@ -100,3 +100,17 @@ def test_a_note_says_where_ten_per_cent_less_moves_the_edge_to_another_dip() -> 
     assert "10 % less of delay of T1 moves it to another, by -0.01 %, where its share, 97 %," in note.says
     smooth = explained(line("T1", ENDS, 5e-9, 50.0), 1e6, capacitance("CL", "out", "0", 20e-12))
     assert "another-dip" not in [note.note for note in smooth.notes]
+
+
+def test_no_method_that_leaves_out_a_line_is_recommended_where_it_has_a_share_or_moves_the_edge() -> None:
+    found = explained(line("T1", ENDS, 5e-9, 50.0), 1e6, capacitance("CL", "out", "0", 20e-12))
+    assert found.hand is not None
+    assert not [row for row in found.hand.methods if row.edge == "f_high" and row.recommended]
+    assert found.hand.no_method["f_high"].startswith("T1, a line, moves it by -83 % and has a share of ")
+
+
+def test_a_line_that_does_nothing_leaves_the_recommendation_alone() -> None:
+    found = explained(line("T1", ENDS, 1e-15, 50.0), 1e6, capacitance("CL", "out", "0", 20e-12))
+    assert found.hand is not None
+    assert [row.method for row in found.hand.methods if row.edge == "f_high" and row.recommended]
+    assert "f_high" not in found.hand.no_method

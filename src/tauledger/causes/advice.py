@@ -8,6 +8,7 @@ from tauledger.causes.evidence import EdgeEvidence, in_hertz
 
 # A way by hand that misses by more is no advice; the same bound as for recommending one.
 OF_USE = 0.10
+SAME = 0.01
 WORDS = {
     "f_high": {
         "sum of time constants": "add the time constant of every node: their sum gives",
@@ -45,7 +46,7 @@ def advice(edge: EdgeEvidence, criticised_hz: float) -> str:
         (together, combined.all_nodes),
         ("two coefficients", combined.two_coefficients),
     ):
-        if hz is not None and miss(edge, hz) < min(before, math.log1p(OF_USE)):
+        if hz is not None and not _same(hz, criticised_hz) and miss(edge, hz) < min(before, math.log1p(OF_USE)):
             return f"{WORDS[edge.edge][method]} {in_hertz(hz)}"
     for what, hz in (("all poles", combined.all_poles), ("poles and zeros", combined.with_zeros)):
         if hz is not None and miss(edge, hz) < min(before, math.log1p(OF_USE)):
@@ -53,9 +54,18 @@ def advice(edge: EdgeEvidence, criticised_hz: float) -> str:
     return "count it together with the other causes: taken alone it leads further off"
 
 
+def _same(hz: float, criticised_hz: float) -> bool:
+    """Whether a way gives what the criticised figure gives: no advice against that."""
+    return abs(math.log(hz / criticised_hz)) < SAME
+
+
 def miss(edge: EdgeEvidence, hz: float | None) -> float:
-    """Give |ln(hz/edge)|; infinite where one of them is missing."""
-    return math.inf if hz is None or edge.hz is None else abs(math.log(hz / edge.hz))
+    """Give |ln(hz/edge)|, the edge with lines as at DC if there are any, as all figures by hand have them.
+
+    Infinite where one of them is missing.
+    """
+    target = edge.hz if edge.at_rest_hz is None else edge.at_rest_hz
+    return math.inf if hz is None or target is None else abs(math.log(hz / target))
 
 
 def nearer(edge: EdgeEvidence, hz: float | None, criticised_hz: float | None) -> bool:

@@ -10,6 +10,7 @@ from tauledger.hand.estimate import Edge, LowerRow, MethodEstimate
 from tauledger.quantity import percent
 
 Reasons = Mapping[Edge, str]
+NOTHING_LEFT_OUT: Reasons = {}
 
 # Measured over 311 networks: for σ ≤ 1.5 and no zero near the edge the sum of time constants never came out high for
 # f_H; with σ < 0.5 and b1²/b2 > 10 it was 0…14 % low, while between 0.5 and 1.5 all poles by hand were within −3…+14 %.
@@ -35,6 +36,7 @@ def methods(
     lower_hz: float | None,
     upper_weighted_hz: float | None = None,
     lower_weighted_hz: float | None = None,
+    left_out: Reasons = NOTHING_LEFT_OUT,
 ) -> tuple[MethodEstimate, ...]:
     """Give every method's f_H and f_L, the recommended one marked; the last of each edge is the exact one.
 
@@ -42,18 +44,23 @@ def methods(
     the edges of the full network, None where there is none. An edge without poles has no methods. *_weighted_hz: of
     `weighted_upper` and `weighted_lower`.
     No method is recommended where there is no such edge, where a zero moves it by more than 10 %, as no sum of time
-    constants sees zeros, and where none comes within 10 % of it.
+    constants sees zeros, where none comes within 10 % of it, and for an edge in left_out, what no method counts there.
     """
     return (
-        *_edge("f_high", upper, upper_hz, upper_weighted_hz),
-        *_edge("f_low", lower, lower_hz, lower_weighted_hz),
+        *_edge("f_high", upper, upper_hz, upper_weighted_hz, left_out.get("f_high", "")),
+        *_edge("f_low", lower, lower_hz, lower_weighted_hz, left_out.get("f_low", "")),
     )
 
 
-def none_recommended(estimates: Sequence[MethodEstimate], upper: Combined | None, lower: Combined | None) -> Reasons:
+def none_recommended(
+    estimates: Sequence[MethodEstimate],
+    upper: Combined | None,
+    lower: Combined | None,
+    left_out: Reasons = NOTHING_LEFT_OUT,
+) -> Reasons:
     """Give the reason for each edge that has methods and none of them recommended.
 
-    estimates: of `methods`, from the same upper and lower.
+    estimates: of `methods`, from the same upper, lower and left_out.
     """
     found: dict[Edge, str] = {}
     edges: tuple[tuple[Edge, Combined | None, tuple[str, str]], ...] = (
@@ -64,7 +71,8 @@ def none_recommended(estimates: Sequence[MethodEstimate], upper: Combined | None
         told = [row for row in estimates if row.edge == edge]
         if combined is None or not told or any(row.recommended for row in told):
             continue
-        _, reason = _choice(combined, what, {row.method: row.hz for row in told[:-2]}, told[-1].hz)
+        by_method = {row.method: row.hz for row in told[:-2]}
+        _, reason = _choice(combined, what, by_method, told[-1].hz, left_out.get(edge, ""))
         found |= {edge: reason} if reason else {}
     return found
 
@@ -112,7 +120,7 @@ def recommended(combined: Combined) -> str | None:
 
 
 def _edge(
-    edge: Edge, combined: Combined | None, exact_hz: float | None, weighted_hz: float | None
+    edge: Edge, combined: Combined | None, exact_hz: float | None, weighted_hz: float | None, left_out: str
 ) -> tuple[MethodEstimate, ...]:
     if combined is None or len(combined.roots.poles) == 0:
         return ()
@@ -127,16 +135,16 @@ def _edge(
         ("all poles", "", combined.all_poles),
         ("exact", "", exact_hz),
     )
-    choice, _ = _choice(combined, what, {name: hz for name, _, hz in estimates}, exact_hz)
+    choice, _ = _choice(combined, what, {name: hz for name, _, hz in estimates}, exact_hz, left_out)
     return tuple(MethodEstimate(edge, name, hz, name == choice) for name, _, hz in estimates)
 
 
 def _choice(
-    combined: Combined, what: tuple[str, str], hz: Mapping[str, float | None], exact_hz: float | None
+    combined: Combined, what: tuple[str, str], hz: Mapping[str, float | None], exact_hz: float | None, left_out: str
 ) -> tuple[str | None, str]:
     """Give the recommended method, or None and the reason; no reason where there is no edge to speak of."""
-    if exact_hz is None:
-        return None, ""
+    if exact_hz is None or left_out:
+        return None, left_out
     condition = recommended(combined)
     if condition is None:
         return None, _defeated(combined)
