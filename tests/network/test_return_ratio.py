@@ -21,6 +21,7 @@ from tauledger.devices.parts import (
     current_source,
     delayed_transconductance,
     inductance,
+    line,
     mutual_inductance,
     resistance,
     transconductance,
@@ -39,6 +40,8 @@ from tauledger.network.return_ratio import (
     at_source,
     at_wire,
     checked,
+    leaves_there,
+    phase_of_delays,
     ratio_to,
     return_ratio,
 )
@@ -345,3 +348,33 @@ def test_names_are_compared_as_the_netlist_compares_them() -> None:
     with pytest.raises(InputError, match="is used elsewhere"):
         at_admittance(network, network.part("L1"))
     assert at_wire(network, "r2", "out").kind == "wire"
+
+
+def test_a_wire_by_which_the_signal_comes_out_is_cut_the_other_way_round() -> None:
+    """A transconductance into R ‖ C with half of it back: T = gm·R/2 at its control and, outward, at its output."""
+    network = ring([(2e-3, 10e3, 1e-12), (1e-3, 2e3, 1e-12)])
+    s = on_axis(1e6)
+    assert not leaves_there(network, "G0", "n0", complex(s[0]))
+    assert leaves_there(network, "G0", "n1", complex(s[0]))
+    whole = ratio(at_source(network, [part for part in network.parts if part.owner == "G0"]), 1e6)
+    assert ratio(at_wire(network, "G0", "n0"), 1e6) == pytest.approx(whole, rel=1e-9)
+    assert ratio(at_wire(network, "G0", "n1", outward=True), 1e6) == pytest.approx(whole, rel=1e-9)
+    assert ratio(at_wire(network, "G0", "n1"), 1e6) != pytest.approx(whole, rel=0.1)
+
+
+@pytest.mark.parametrize(("delay_s", "hz"), [(2e-9, 1e6), (10e-9, 5e6)])
+def test_a_matched_line_in_the_loop_delays_t_by_its_own_phase(delay_s: float, hz: float) -> None:
+    parts = [
+        voltage_source("VS", "s", "0", 1.0),
+        resistance("RS", "s", "in", 1e3),
+        transconductance("G1", ("a", "0"), ("in", "0"), 1.0),
+        resistance("R1", "a", "0", 50.0),
+        line("T1", ("a", "0", "b", "0"), delay_s, surge_ohm=50.0),
+        resistance("R2", "b", "0", 50.0),
+        resistance("RF", "b", "in", 1e6),
+    ]
+    network = Network.from_parts(parts, output=Port("b"))
+    opening = at_source(network, [part for part in network.parts if part.owner == "G1"])
+    assert phase_of_delays(opening, hz) == pytest.approx(-360.0 * hz * delay_s, rel=1e-3)
+    without = Network.from_parts([part for part in parts if part.kind != "line"], output=Port("a"))
+    assert phase_of_delays(replace(opening, network=without), hz) == 0.0

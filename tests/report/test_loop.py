@@ -276,3 +276,40 @@ def test_whether_a_found_loop_is_stable_is_answered_from_the_poles_and_its_margi
     growing = replace(ECHO_PREAMP.poles[0], real_hz=2e3, imag_hz=0.0)
     assert asked(replace(looped, poles=(growing,)))[question].startswith("No: a pole at 2.000 kHz")
     assert "Yes" not in asked(replace(looped, poles=()))[question]
+
+
+def test_a_return_ratio_that_is_not_real_is_told_with_its_angle() -> None:
+    lagging = replace(
+        WIRE,
+        return_ratio_real=-0.28,
+        return_ratio_imag=-74.0,
+        return_ratio_simulated=74.0,
+        return_ratio_simulated_deg=-90.2,
+        closing_return_ratio=-0.3,
+        closing_return_ratio_imag=-70.0,
+        open_edge_hz=None,
+        flat=False,
+    )
+    page = words(terminal(with_loops(lagging)))
+    assert "return ratio T at DC 74.00 at -90.2° (37.4 dB) 74.00 at -90.2°" in page
+    assert "70.00 (-90.2°)" in page
+    assert "whose T has its edge" not in page
+    negative = replace(WIRE, return_ratio_simulated_deg=180.0, return_ratio_real=-5.0, return_ratio_simulated=5.0)
+    assert "return ratio T at DC -5.000 (14.0 dB) -5.000" in words(terminal(with_loops(negative)))
+
+
+def test_where_gain_bandwidth_over_noise_gain_is_not_f_high_the_reason_stands_instead() -> None:
+    not_flat = replace(AMPLIFIER, noise_gain_edge_hz=None, not_f_high="the noise gain is not flat")
+    page = words(terminal(with_loops(not_flat)))
+    assert "the noise gain is not flat: gain-bandwidth over it is not f_H" in page
+    assert "f_H = gain-bandwidth" not in page
+
+
+def test_t0_of_the_cut_wire_is_the_product_of_the_gains_round_it() -> None:
+    stages = (
+        LoopStageFacts("inside Q1", 0.98, 0.98),
+        LoopStageFacts("out", -500.0, -500.0),
+        LoopStageFacts("b", 0.2, 0.2),
+    )
+    page = words(terminal(with_loops(replace(WIRE, hand_siemens=None, hand_stages=stages, hand_return_ratio=98.0))))
+    assert "T0 = 0.9800 (inside Q1) · 500.0 (out) · 0.2000 (b) = 98.00 (-1.0 %)" in page
