@@ -15,6 +15,7 @@ from tauledger.circuit import Port
 from tauledger.devices.family import Device, Terminal, Transconductor
 from tauledger.devices.parts import Part, capacitance, inductance, mutual_inductance, resistance, voltage_source
 from tauledger.network.assemble import Network
+from tauledger.quantity import percent
 
 
 def ids(found: Evidence) -> list[str]:
@@ -250,7 +251,7 @@ def ladder(*parts: Part) -> Network:
     return Network.from_parts([voltage_source("VIN", "in", "0", 1.0), *parts], output=Port("out", "0", "voltage"))
 
 
-def test_a_peak_is_told_with_the_q_and_the_overshoot_of_such_a_pair() -> None:
+def test_a_peak_is_told_with_the_q_of_its_pair_and_the_overshoot_of_a_step() -> None:
     """Series R, L and C with Q = √(L/C)/R = 2: |H| peaks by Q/√(1 − 1/(4Q²)), a step by exp(−π/√(4Q² − 1)) = 44 %."""
     network = ladder(
         resistance("R1", "in", "m", 50.0), inductance("L1", "m", "out", 1e-6), capacitance("C1", "out", "0", 1e-10)
@@ -262,6 +263,42 @@ def test_a_peak_is_told_with_the_q_and_the_overshoot_of_such_a_pair() -> None:
     assert "Q = 2.00" in note.says
     assert "overshoots by 44 %" in note.says
     assert notes.peaking_above(evidence(boards.cascode())) is None
+
+
+def test_the_overshoot_of_a_peak_that_zeros_lower_is_that_of_the_whole_response() -> None:
+    """Series R, L with C and r across: H = (1 + s·r·C)/(1 + s·(R + r)·C + s²·L·C), its step response in closed form."""
+    big, small, henry, farad = 20.0, 60.0, 1e-6, 1e-10
+    network = ladder(
+        resistance("R1", "in", "m", big),
+        inductance("L1", "m", "out", henry),
+        resistance("R2", "out", "x", small),
+        capacitance("C1", "x", "0", farad),
+    )
+    note = notes.peaking_above(evidence(network, at_hz=1e3))
+    assert note is not None
+    zeta_omega, omega = (big + small) / (2.0 * henry), 1.0 / np.sqrt(henry * farad)
+    damped = np.sqrt(omega**2 - zeta_omega**2)
+    time = np.linspace(0.0, 20.0 / zeta_omega, 200_000)
+    # 1 − e^(−σt)·(cos ωt + (σ/ω)·sin ωt) of the poles alone, and r·C times its derivative of the zero
+    ringing = np.exp(-zeta_omega * time)
+    poles_alone = 1.0 - ringing * (np.cos(damped * time) + zeta_omega / damped * np.sin(damped * time))
+    of_zero = small * farad * omega**2 / damped * ringing * np.sin(damped * time)
+    overshoot = percent(float((poles_alone + of_zero).max() - 1.0)).removeprefix("+")
+    assert f"overshoots by {overshoot}" in note.says
+
+
+def test_a_peak_of_a_band_that_does_not_reach_dc_has_no_overshoot_told() -> None:
+    network = ladder(
+        capacitance("C0", "in", "a", 1e-6),
+        resistance("R1", "a", "m", 50.0),
+        inductance("L1", "m", "out", 1e-6),
+        capacitance("C1", "out", "0", 1e-10),
+        resistance("R2", "out", "0", 1e4),
+    )
+    note = notes.peaking_above(evidence(network))
+    assert note is not None
+    assert "pair of poles" in note.says
+    assert "overshoots" not in note.says
 
 
 def test_what_comes_back_within_3_db_is_told() -> None:

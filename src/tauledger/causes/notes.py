@@ -21,6 +21,11 @@ from tauledger.quantity import engineering, percent
 HALF_SHORT = (0.3, 0.95)
 WORTH_A_SHARE = 0.02
 PEAKS_DB = 0.5
+# ln of a frequency: a pair of poles so near is what makes a peak.
+NEXT_TO_THE_PEAK = 0.3
+# Of residues, whose sum is known: more off than this, and poles lie too close for them.
+SUM_HOLDS = 1e-6
+STEP_POINTS = 2000
 TOLD = 3
 DRIVEN_TERMINALS = ("base", "gate", "emitter", "source")
 
@@ -283,20 +288,47 @@ def _peaking(evidence: Evidence, edge: EdgeEvidence) -> Note | None:
     if evidence.lines:
         names = ", ".join(line.owner for line in evidence.lines)
         return Note("peaking", edge.quantity, f"{peaks}; reflections on {names} may make it")
-    q = _quality(10.0 ** (found.peaking_db / 20.0))
-    step = ""
-    if edge.edge == "f_high":
-        step = f", whose step response overshoots by {100.0 * math.exp(-math.pi / math.sqrt(4.0 * q**2 - 1.0)):.2g} %"
-    return Note(
-        "peaking",
-        edge.quantity,
-        f"{peaks}, as a pair of poles with Q = {q:.2f} does{step}",
+    beside = 2.0 * np.pi * found.peaking_at_hz
+    sharp = [p for p in evidence.poles if p.imag > 0.0 and abs(p) > np.sqrt(2.0) * abs(p.real)]
+    pair = min(sharp, key=lambda p: abs(np.log(abs(p) / beside)), default=None)
+    told = ""
+    if pair is not None and abs(np.log(abs(pair) / beside)) < NEXT_TO_THE_PEAK and pair.real < 0.0:
+        told = f", next to the pair of poles at {in_hertz(abs(pair) / (2.0 * np.pi))} with Q = {_quality(pair):.2f}"
+    overshoot = _overshoot(evidence) if edge.edge == "f_high" else None
+    step = f"; a step overshoots by {percent(overshoot).removeprefix('+')}" if overshoot is not None else ""
+    return Note("peaking", edge.quantity, f"{peaks}{told}{step}")
+
+
+def _quality(pole: complex) -> float:
+    return float(abs(pole) / (-2.0 * pole.real))
+
+
+def _overshoot(evidence: Evidence) -> float | None:
+    """Give the overshoot of the step response as a fraction of its final value, exact, by residues.
+
+    y(t) = 1 + Σ c·exp(p·t) with c = −Π(1 − p/z)/Π(1 − p/p_j) over the other poles. None where the band does not reach
+    DC, where delays or a pole to the right of the axis leave no such sum, and where poles lie so close that the sum at
+    t = 0 is not what the highest powers of s make it.
+    """
+    poles, zeros = evidence.poles, evidence.zeros
+    rational = not evidence.bands.network.delayed and np.all(poles.real < 0.0) and np.all(zeros != 0.0)
+    if evidence.bands.midband.from_hz != 0.0 or not rational or len(zeros) > len(poles):
+        return None
+    others = 1.0 - poles[:, None] / poles
+    np.fill_diagonal(others, 1.0)
+    if not np.all(others):
+        return None
+    c = -np.prod(1.0 - poles[:, None] / zeros, axis=1) / np.prod(others, axis=1)
+    at_once = (np.prod(poles) / np.prod(zeros)).real if len(zeros) == len(poles) else 0.0
+    if abs(1.0 + c.sum() - at_once) > SUM_HOLDS:
+        return None
+    slowest, fastest = np.min(-poles.real), np.max(np.abs(poles))
+    ringing = np.min(np.abs(poles[poles.imag != 0.0]), initial=fastest)
+    time = np.concatenate(
+        [np.geomspace(1e-2 / fastest, 10.0 / slowest, STEP_POINTS), np.linspace(0.0, 40.0 / ringing, STEP_POINTS)]
     )
-
-
-def _quality(peak: float) -> float:
-    """Give Q of the pair 1/(1 + s/(ω0·Q) + s²/ω0²) whose |H| peaks at `peak` = Q/√(1 − 1/(4Q²)), above 1."""
-    return math.sqrt(0.5 * peak * (peak + math.sqrt(peak**2 - 1.0)))
+    response_to_step = 1.0 + (np.exp(np.multiply.outer(time, poles)) @ c).real
+    return float(max(response_to_step.max() - 1.0, 0.0))
 
 
 def _speeds_up(evidence: Evidence, edge: EdgeEvidence) -> Note | None:
