@@ -304,26 +304,39 @@ def _times(gain: float, name: str) -> str:
     return f", times {gain:.3g} from {name} to the output" if abs(gain - 1.0) > UNITY_FROM_ONE else ""
 
 
+def _counted(rows: Sequence[PhaseRow], by_hand: Sequence[HandRoot], above_hz: float) -> tuple[HandRoot, ...]:
+    """Give the poles and zeros by hand of the rows beyond the dominant pole, each member of a pair by itself."""
+    known = {values for row in rows for values in row.hand_values.split("; ")}
+    counted: list[HandRoot] = []
+    for row in rows:
+        if row.hand_hz is None or row.name in (*DOMINANT, LOAD_POLE.name) or abs(row.hand_hz) <= above_hz:
+            continue
+        named = row.hand_formula.partition("√(")[2].rstrip(")").split(" · ")
+        values = row.hand_values.split("; ")
+        members = [one for one in by_hand if one.formula.name in named and one.values in values]
+        if not members:
+            name = row.name if row.hand_values else f"{row.name} {row.hand_formula}"
+            members = [HandRoot("pole" if row.kind == "pole" else "zero", row.hand_hz, Formula(name, "", "", ""), "")]
+        counted += [one for one in members if one.formula.name not in (*DOMINANT, LOAD_POLE.name)]
+    # the mirror's zero belongs to its pole: where the one is seen, paper counts both
+    told = {one.formula.name for one in counted}
+    zeros = [one for one in by_hand if one.of == "mirror" and one.kind == "zero" and one.values in known]
+    return (*counted, *(one for one in zeros if one.formula.name not in told))
+
+
 def _steps(
     single: _Single | None, by_hand: Sequence[HandRoot], rows: Sequence[PhaseRow], hz: float, margin: float
 ) -> tuple[UnityStep, ...]:
     """Give f_u of the dominant pole alone, f_u with the further roots, and the margin."""
     if single is None:
         return ()
-    known = {values for row in rows for values in row.hand_values.split("; ")}
-    counted = [
-        one
-        for one in by_hand
-        if one.formula.name not in (*DOMINANT, LOAD_POLE.name)
-        # the mirror's zero belongs to its pole: where the one is seen, paper counts both
-        and (one.of == "stage" or (one.of in ("mirror", "cascode") and one.values in known))
-    ]
+    counted = _counted(rows, by_hand, single.pole_hz)
     poles = [one.hz for one in counted if one.kind == "pole"]
     zeros = [one.hz for one in counted if one.kind == "zero"]
     refined = unity_gain_with_roots_hz(single.hz, poles, zeros)
-    why = _why_single(single, refined, hz, counted)
+    why = _why_single(single, refined, hz, counted) or _without_formula(single, hz, rows)
     steps = [UnityStep("f_u", "Hz", single.formula.written, single.values, single.hz, hz, why)]
-    if refined is None or (not counted and single.formula is UNITY_GAIN_OF_LOAD):
+    if refined is None or not counted:
         return tuple(steps)
     steps.append(UnityStep("f_u", "Hz", UNITY_GAIN_WITH_ROOTS.written, "", refined, hz, ""))
     by_paper = HALF_TURN_DEG - phase_used_deg(refined, [single.pole_hz, *poles], zeros)
@@ -348,6 +361,16 @@ def _why_single(single: _Single, refined: float | None, hz: float, roots: Sequen
     ratio = abs(nearest.hz) / single.hz
     where = "sits below it" if ratio < 1.0 else f"sits at {ratio:.2g} times it"
     return f"the {nearest.formula.name}, {engineering(abs(nearest.hz), 'Hz', 3)}, {where}"
+
+
+def _without_formula(single: _Single, hz: float, rows: Sequence[PhaseRow]) -> str:
+    """Name the first pole that has no formula, where f_u by hand is too high."""
+    if single.hz / hz - 1.0 <= SAME:
+        return ""
+    bare = [row for row in rows if row.kind == "pole" and row.hand_hz is None]
+    sizes = [(math.hypot(row.real_hz, row.imag_hz), row.name) for row in bare]
+    at, name = min((one for one in sizes if one[0] > single.pole_hz), default=(math.inf, ""))
+    return f"the {name} at {engineering(at, 'Hz', 3)} has no formula" if at < 2.0 * single.hz else ""
 
 
 def _why_margin(off: float, rows: Sequence[PhaseRow]) -> str:
