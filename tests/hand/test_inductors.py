@@ -163,3 +163,19 @@ def test_a_coil_that_peaks_counts_l_over_r_and_the_choke_r_over_l() -> None:
     assert numbers.edges.f_low is not None
     assert row.title.startswith("LC, choke at ")
     assert row.edge_hand_hz == pytest.approx(numbers.edges.f_low.hz, rel=0.05)
+
+
+def test_a_choke_that_opens_inside_the_plateau_makes_no_upper_edge() -> None:
+    """1 Ω into 10 nF, and beside it 3.3 kΩ with 10 mH: R/L is at 52 kHz, where the gain changes by 3e-4."""
+    numbers, explained = solved(
+        resistance("RS", "in", "out", 1.0),
+        capacitance("CL", "out", "0", 10e-9),
+        resistance("RC", "out", "x", 3.3e3),
+        inductance("LCH", "x", "0", 10e-3),
+    )
+    assert explained.hand is not None
+    (row,) = explained.hand.inductors
+    assert row.time_constant_exact_s == pytest.approx(10e-3 / 3301.0, rel=1e-6, abs=0.0)
+    assert not row.in_path
+    assert numbers.edges.f_high is not None
+    assert explained.hand.hand_f_high_hz == pytest.approx(numbers.edges.f_high.hz, rel=1e-2)

@@ -28,14 +28,21 @@ WORDS = {LEAKAGE: "leakage inductance", MAGNETISING: "magnetising inductance"}
 def inductor_rows(bands: Bands, devices: tuple[Device, ...], constants: OpenConstants) -> tuple[InductorRow, ...]:
     """Give one row per inductor that is short at mid-band and faces a resistance, in the order of the file.
 
-    constants: of `open_constants`. A row counts where its part of Σ|w·τ| is 2 % or more. None where capacitors set the
+    constants: of `open_constants`. A row counts where its part of Σ|w·τ| is 2 % or more, and not where the plateau goes on
+    beyond its R/(2π·L): a choke that has opened inside the band makes no edge of it. None where capacitors set the
     gain, whose circuit is complex.
     """
     if bands.s_mid:
         return ()
     whole = math.fsum(abs(part.delay_s) for part in constants.parts)
+    to_hz = bands.midband.to_hz or 0.0
     found = [
-        _row(bands, devices, part, abs(part.delay_s) >= MOMENT_IN_PATH * whole)
+        _row(
+            bands,
+            devices,
+            part,
+            abs(part.delay_s) >= MOMENT_IN_PATH * whole and 2.0 * math.pi * to_hz * abs(part.time_constant_s) < 1.0,
+        )
         for part in constants.parts
         if part.kind == "inductance" and part.time_constant_s != 0.0
     ]
