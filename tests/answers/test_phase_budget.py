@@ -351,8 +351,10 @@ def test_a_mirror_bridged_by_its_own_c_gd_is_no_compensated_stage_and_a_follower
     assert budget.by_hand[0].hand == near(budget.by_hand[0].exact, rel=0.1)
 
 
-def test_a_pole_that_paper_does_not_know_is_named_where_it_lowers_unity_gain(engine: Engine, tmp_path: Path) -> None:
-    """C1 far above C_c and C_L far above both: the second pole is not that of the formula, and is not counted."""
+def test_unity_gain_with_further_roots_is_told_only_where_a_row_has_them_by_hand(
+    engine: Engine, tmp_path: Path
+) -> None:
+    """A capacitor at the mirror brings its pole below f_u; f_u with further roots is told only where a row has some."""
     weak = OTA.replace("CL out 0 3p", "CL out 0 3p\nCN n1 0 3p")
     budget = budget_of(of_text(weak, engine, tmp_path))
     counted = [one for one in budget.rows if one.hand_hz is not None and one.name != "pole of the load"]
