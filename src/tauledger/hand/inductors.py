@@ -28,8 +28,8 @@ WORDS = {LEAKAGE: "leakage inductance", MAGNETISING: "magnetising inductance"}
 def inductor_rows(bands: Bands, devices: tuple[Device, ...], constants: OpenConstants) -> tuple[InductorRow, ...]:
     """Give one row per inductor that is short at mid-band and faces a resistance, in the order of the file.
 
-    constants: of `open_constants`. A row counts where its part of Σ|w·τ| is 2 % or more, and not where the plateau goes on
-    beyond its R/(2π·L): a choke that has opened inside the band makes no edge of it. None where capacitors set the
+    constants: of `open_constants`. A row counts where its part of Σ|w·τ| is 2 % or more, and not where the plateau goes
+    on beyond its R/(2π·L): a choke that has opened inside the band makes no edge of it. None where capacitors set the
     gain, whose circuit is complex.
     """
     if bands.s_mid:
