@@ -80,6 +80,8 @@ def test_f_u_and_margins_are_those_of_ngspice_on_the_netlist_as_written(
     reference = ran.output[0]
     hz = ran.level_hz(1.0)
     assert facts.simulated_hz == pytest.approx(hz, rel=WITHIN / 10)
+    # margins count from 0° or 180°, whatever is left of that at mid-band
+    reference = complex(np.copysign(1.0, reference.real))
     phase = ran.phase_beyond(reference)
     assert facts.phase_margin_deg == pytest.approx(180.0 + ran.at(hz, phase), abs=0.02)
     if facts.gain_margin_db is None:
@@ -89,7 +91,8 @@ def test_f_u_and_margins_are_those_of_ngspice_on_the_netlist_as_written(
         assert facts.gain_margin_at_hz == pytest.approx(turned, rel=WITHIN)
         left = -20.0 * ran.at(turned, np.log10(np.abs(ran.output)))
         assert facts.gain_margin_db == pytest.approx(left, abs=0.02)
-    product = abs(reference) * ran.level_hz(abs(reference) / math.sqrt(2.0))
+    gain = abs(ran.output[0])
+    product = gain * ran.level_hz(gain / math.sqrt(2.0))
     assert facts.gain_bandwidth_hz == pytest.approx(product, rel=WITHIN)
 
 
@@ -202,7 +205,7 @@ def test_who_sets_it_is_told_unasked_only_where_the_band_begins_at_dc_with_gain_
     ("board", "why"),
     [
         ("line_follower.cir", "gain at mid-band is 0.98"),
-        ("tia_pair.cir", "no plain ratio"),
+        ("tia_pair.cir", "a gain in Ω does not fall to 1"),
         ("cable_driver.cir", "no more than 1"),
     ],
 )
@@ -210,8 +213,9 @@ def test_a_gain_below_one_and_a_transimpedance_have_no_unity_gain_and_say_so_whe
     board: str, why: str, engine: Engine
 ) -> None:
     assert review(FIXTURES / board, engine=engine).f_unity is None
-    with pytest.raises(InputError, match=why):
-        review(FIXTURES / board, engine=engine, asked=Asked(unity=True))
+    found = facts_of(review(FIXTURES / board, engine=engine, asked=Asked(unity=True)))
+    assert why in found.none
+    assert found.simulated_hz is found.exact_hz is None
 
 
 def test_a_gain_that_levels_off_above_one_has_no_unity_gain() -> None:
@@ -226,8 +230,8 @@ def test_a_gain_that_levels_off_above_one_has_no_unity_gain() -> None:
         output=Port("out"),
     )
     assert review_network(network).f_unity is None
-    with pytest.raises(InputError, match="does not fall to 1"):
-        review_network(network, asked=Asked(unity=True))
+    none = facts_of(review_network(network, asked=Asked(unity=True))).none
+    assert none == "the gain does not fall to 1 beyond mid-band"
 
 
 def test_an_amplifier_with_one_pole_far_below_f_u_is_swept_to_there(engine: Engine, tmp_path: Path) -> None:

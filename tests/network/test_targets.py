@@ -90,7 +90,7 @@ def figures(network: Network, midband: MidBand) -> tuple[float, float, float, fl
     assert found is not None
     assert found.gain_margin_db is not None
     assert high is not None
-    return math.log(found.hz), found.phase_margin_deg, found.gain_margin_db, math.log(abs(same.gain) * high)
+    return math.log(found.hz), found.phase_margin_deg or 0.0, found.gain_margin_db, math.log(abs(same.gain) * high)
 
 
 def moved(move: UnityMove) -> tuple[float, float, float, float]:

@@ -16,6 +16,7 @@ from numpy.typing import NDArray
 from tauledger.network.admittance import all_pass
 from tauledger.network.assemble import Network
 from tauledger.network.edges import HALF_POWER, find_edges
+from tauledger.network.follower import polarity, polarity_offset_deg
 from tauledger.network.lines import lumped
 from tauledger.network.midband import MidBand, find_midband, in_changed
 from tauledger.network.spectrum import pole_frequencies
@@ -34,7 +35,8 @@ class Figures(Struct, frozen=True):
     """f_u with its margins, band edges in Hz and mid-band gain in dB of one network; None for what it does not have.
 
     reference_hz: mid-band frequency. gain_margin_at_hz: where the phase has turned by half. stable: no pole lies to the
-    right of the axis.
+    right of the axis. margin_at_hz: of several |H| = 1 that with the smallest margin; further_unity_hz: those
+    beyond f_u.
     """
 
     reference_hz: float
@@ -46,6 +48,8 @@ class Figures(Struct, frozen=True):
     f_low_hz: float | None
     gain_db: float
     stable: bool
+    margin_at_hz: float | None = None
+    further_unity_hz: tuple[float, ...] = ()
 
     def of(self, quantity: str) -> float | None:
         """Give one figure by the word with which it is asked for; what never comes to an end is infinite or 0.
@@ -56,6 +60,8 @@ class Figures(Struct, frozen=True):
             return None
         unending = {"gain_margin": math.inf, "f_h": math.inf, "f_l": 0.0}
         if quantity in (*MARGINS, "f_u") and self.f_unity_hz is None:
+            return None
+        if quantity in MARGINS and self.phase_margin_deg is None:
             return None
         found = {
             "margin": self.phase_margin_deg,
@@ -74,7 +80,7 @@ def reference_in(network: Network, midband: MidBand, *, chosen: bool) -> MidBand
     """
     if chosen or midband.frequency_hz == 0.0:
         return in_changed(network, midband)
-    return find_midband(network)
+    return find_midband(network, within_hz=midband.within_hz)
 
 
 def figures_of(network: Network, midband: MidBand, *, chosen: bool) -> Figures:
@@ -98,6 +104,8 @@ def figures_of(network: Network, midband: MidBand, *, chosen: bool) -> Figures:
         f_low_hz=edges.f_low.hz if edges.f_low else None,
         gain_db=20.0 * math.log10(abs(reference.gain)),
         stable=bool(np.all(poles.real <= 0.0)),
+        margin_at_hz=unity.margin_at_hz if unity else None,
+        further_unity_hz=unity.further_hz if unity else (),
     )
 
 
@@ -107,7 +115,7 @@ def simulated_figure(run: RunSweep, quantity: str, exact: Figures) -> float | No
     run: asks the engine for the response of the changed circuit.
     """
     near = {
-        "margin": exact.f_unity_hz,
+        "margin": exact.margin_at_hz,
         "gain_margin": exact.gain_margin_at_hz,
         "f_u": exact.f_unity_hz,
         "f_h": exact.f_high_hz,
@@ -120,9 +128,17 @@ def simulated_figure(run: RunSweep, quantity: str, exact: Figures) -> float | No
     for width in AROUND:
         frequency = np.array([reference_hz, near * (1.0 - width), near, near * (1.0 + width)])
         response = run(np.sort(frequency)).response[np.argsort(np.argsort(frequency))]
-        found = _crossing(quantity, frequency[1:], response[1:] / response[0], abs(complex(response[0])))
+        reference = complex(response[0])
+        if quantity == "gain_margin":
+            reference = polarity(reference) * abs(reference)
+        found = _crossing(quantity, frequency[1:], response[1:] / reference, abs(reference))
         if found is not None:
-            return _nearest_turn(found, exact.phase_margin_deg) if quantity == "margin" else found
+            if quantity == "gain_margin" and exact.gain_margin_db is not None:
+                return math.copysign(found, exact.gain_margin_db)
+            if quantity == "margin":
+                # of the phase beyond mid-band, as which nominal polarity stands
+                return _nearest_turn(found + (polarity_offset_deg(complex(response[0])) or 0.0), exact.phase_margin_deg)
+            return found
     return None
 
 

@@ -88,13 +88,15 @@ def phase_budget(found: Review, subject: Subject) -> PhaseBudget | None:
 class PaperRoots(Struct, frozen=True):
     """The compensated stage, or None, and the poles and zeros that paper knows; halves: of one half circuit of two.
 
-    load: the output, where what stands there makes the dominant pole instead.
+    load: the output, where what stands there makes the dominant pole instead. bridged: the stage whether it compensates
+    or not.
     """
 
     stage: CompensatedStage | None
     roots: tuple[HandRoot, ...]
     halves: bool
     load: LoadedOutput | None = None
+    bridged: CompensatedStage | None = None
 
 
 def paper_roots(subject: Subject) -> PaperRoots:
@@ -107,11 +109,10 @@ def paper_roots(subject: Subject) -> PaperRoots:
     mirror = find_mirror(circuit)
     if mirror is not None:
         circuit = half_circuit(circuit, mirror)
-    stage = find_compensated_stage(circuit, _resistances(hand), whole)
+    bridged = find_compensated_stage(circuit, _resistances(hand), whole)
     load = _load(circuit, whole, numbers, halves=mirror is not None)
-    if load is not None:
-        stage = None
-    return PaperRoots(stage, hand_roots(circuit, stage, load), mirror is not None, load)
+    stage = bridged if bridged is not None and bridged.compensates and load is None else None
+    return PaperRoots(stage, hand_roots(circuit, stage, load), mirror is not None, load, bridged)
 
 
 def _load(circuit: EquivalentCircuit, response: complex, numbers: Numbers, *, halves: bool) -> LoadedOutput | None:

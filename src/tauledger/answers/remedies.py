@@ -38,6 +38,7 @@ CORRECTIONS = 4
 # Twins of a balanced circuit, as close as its halves are asked to be.
 SAME = 1e-6
 ROUNDS = 60
+CLEAR_OF_IT = math.log(1.1)
 MOST_FREE = 3
 # A capacitor that is put in begins at this part of what is across the stage, and may grow to its inverse.
 LEAST_ACROSS = 0.01
@@ -178,6 +179,10 @@ def _solved(
         first = math.exp(straight) if abs(straight) <= FARTHEST and trial.added is None else None
         u = _walk(miss, math.copysign(1.0, straight), start, trial.farthest)
     figures = _figures(trial, math.exp(u), numbers)
+    if figures is not None and u and quantity == "gain_margin" and figures.gain_margin_db is None:
+        # where half turns just vanish any tolerance brings them back
+        u += math.copysign(CLEAR_OF_IT, u)
+        figures = _figures(trial, math.exp(u), numbers)
     return None if figures is None else Found(trial, math.exp(u), first, miss(u) <= _near(quantity, aim), figures)
 
 

@@ -9,9 +9,10 @@ from msgspec import Struct
 from numpy.typing import NDArray
 
 from tauledger.engine.grid import decades
+from tauledger.network.follower import polarity, polarity_offset_deg
 from tauledger.network.midband import HIGHEST_HZ
 from tauledger.network.solve import Complex, Real
-from tauledger.network.unity import HALF_TURN_DEG
+from tauledger.network.unity import HALF_TURN_DEG, Unity
 from tauledger.numbers import POINTS_PER_DECADE
 from tauledger.simulated import RunSweep, Simulated
 from tauledger.solution import Sweep
@@ -25,19 +26,22 @@ Miss = Callable[[complex], float]
 
 
 class SimulatedUnity(Struct, frozen=True):
-    """f_u and both margins by ngspice; the gain margin is None where the phase does not reach −180° in the sweep."""
+    """f_u and both margins by ngspice: None where polarity is not clear, or −180° is not reached in the sweep."""
 
     hz: float
-    phase_margin_deg: float
+    phase_margin_deg: float | None
     gain_margin_db: float | None
     gain_margin_at_hz: float | None
 
 
-def simulate_unity(run: RunSweep, simulated: Simulated, *, reach_hz: float = 0.0) -> SimulatedUnity | None:
+def simulate_unity(
+    run: RunSweep, simulated: Simulated, *, reach_hz: float = 0.0, near: Unity | None = None
+) -> SimulatedUnity | None:
     """Find the first |H| = 1 beyond mid-band; None where the sweep, carried on to 1 THz at most, holds none.
 
     run: asks the engine for the response at any frequencies. reach_hz: carry the sweep on to there at least.
-    The phase is followed along the sweep from mid-band.
+    The phase is followed along the sweep from mid-band. near: the exact figures, which say where of several places the
+    smallest margins are; without them the first counts.
     """
     frequency, h = _outwards(run, simulated, reach_hz)
     reference = midband_phasor(simulated)
@@ -50,18 +54,38 @@ def simulate_unity(run: RunSweep, simulated: Simulated, *, reach_hz: float = 0.0
         return float(np.log(abs(at)))
 
     def half_turn(at: complex) -> float:
-        return float(np.angle(-at / reference))
+        return float(np.angle(-at * polarity(reference)))
 
     k = int(below[0])
     hz, there = _narrowed(run, level, frequency[k - 1 : k + 1], h[k - 1 : k + 1])
+    offset = polarity_offset_deg(reference)
+    if offset is None:
+        return SimulatedUnity(hz, None, None, None)
+    if near is not None and near.margin_at_hz != near.hz:
+        over = np.abs(h) >= 1.0
+        k = _nearest(frequency, np.flatnonzero(over[1:] != over[:-1]) + 1, near.margin_at_hz)
+        _, there = _narrowed(run, level, frequency[k - 1 : k + 1], h[k - 1 : k + 1])
     phase = float(np.degrees(np.angle(there / reference)))
     phase += 360.0 * round((float(turned[k]) - phase) / 360.0)
-    opposed = np.flatnonzero(turned <= -HALF_TURN_DEG)
-    if not len(opposed) or opposed[0] == 0:
-        return SimulatedUnity(hz, HALF_TURN_DEG + phase, None, None)
+    margin = HALF_TURN_DEG + offset + phase
+    turn = np.floor((turned + offset - HALF_TURN_DEG) / 360.0)
+    opposed = np.flatnonzero(turn[1:] != turn[:-1]) + 1
+    if not len(opposed):
+        return SimulatedUnity(hz, margin, None, None)
     k = int(opposed[0])
+    if near is not None and near.gain_margin_at_hz is not None:
+        k = _nearest(frequency, opposed, near.gain_margin_at_hz)
     turned_hz, left = _narrowed(run, half_turn, frequency[k - 1 : k + 1], h[k - 1 : k + 1])
-    return SimulatedUnity(hz, HALF_TURN_DEG + phase, float(-20.0 * np.log10(abs(left))), turned_hz)
+    left_db = float(-20.0 * np.log10(abs(left)))
+    if near is not None and near.gain_margin_db is not None:
+        # of a margin by which the gain may fall, or must rise, the sign says whether it is stable
+        left_db = float(np.copysign(left_db, near.gain_margin_db))
+    return SimulatedUnity(hz, margin, left_db, turned_hz)
+
+
+def _nearest(frequency: Real, ends: NDArray[np.intp], hz: float) -> int:
+    """Give of the upper ends of brackets, indices into frequency (k,), that of the one nearest to hz."""
+    return int(min(ends, key=lambda k: abs(np.log(np.sqrt(frequency[k - 1] * frequency[k]) / hz))))
 
 
 def midband_phasor(simulated: Simulated) -> complex:
@@ -95,13 +119,14 @@ def _outwards(run: RunSweep, simulated: Simulated, reach_hz: float) -> tuple[Rea
 def _narrowed(
     run: RunSweep, miss: Miss, bracket_hz: NDArray[np.float64], response: NDArray[np.complex128]
 ) -> tuple[float, complex]:
-    """Find where `miss` of H falls through zero in a bracket, over ln f, and give the frequency in Hz and H there.
+    """Find where `miss` of H passes zero in a bracket, over ln f, and give the frequency in Hz and H there.
 
     Source: Dowell and Jarratt, "A modified regula falsi method for computing the root of an equation", BIT 11, 1971.
     """
     a, b = (float(u) for u in np.log(bracket_hz))
     over_a, over_b = miss(complex(response[0])), miss(complex(response[1]))
     u, there = b, complex(response[1])
+    falls = over_a > over_b
     last = 0
     for _ in range(ROUNDS):
         u = (a * over_b - b * over_a) / (over_b - over_a)
@@ -109,7 +134,7 @@ def _narrowed(
         over = miss(there)
         if abs(over) <= SMALL:
             break
-        if over > 0.0:
+        if (over > 0.0) == falls:
             a, over_a = u, over
             over_b = over_b / 2.0 if last > 0 else over_b
             last = 1

@@ -4,62 +4,73 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
+import numpy as np
 from msgspec.structs import replace
 
 from tauledger.answers.answer import Subject
 from tauledger.answers.simulated_unity import SimulatedUnity, simulate_unity
-from tauledger.errors import InputError
+from tauledger.network.edges import crossing
+from tauledger.network.follower import is_follower_stable
 from tauledger.network.midband import MidBand
 from tauledger.network.unity import Unity, find_unity, is_ratio
 from tauledger.numbers import Numbers
-from tauledger.record import Review, UnityFacts, UnityStep
+from tauledger.quantity import engineering
+from tauledger.record import HalfTurnFacts, Review, UnityFacts, UnityStep
 
 # From here on an amplifier is meant to be closed around: at less, unity gain is what lies beyond the band.
 WORTH_A_SECTION = 10.0
 # Gain times f_H further off than this says nothing of f_u: other poles and zeros lie in between.
 MEANS_NOTHING = 3.0
-LEFT_OUT = "leave it out: who sets the band edges is in the review"
 
 
 def unity_facts(found: Review, subject: Subject, *, asked: bool) -> UnityFacts | None:
     """Give f_u and its margins; None where the response is no ratio above 1 at mid-band or does not fall to 1.
 
-    asked: elements and nodes are wanted; they are given unasked where the plateau reaches down to DC with a gain of 10
-    or more, as of an amplifier that is meant to be closed around. Nothing where a pole lies in the right half-plane:
-    no margin means anything then. Where the network is not trusted ngspice's figures alone are given.
-    Raises InputError where it was asked and there is none.
+    asked: elements and nodes are wanted, and where there is no f_u the reason; they are given unasked where the plateau
+    reaches down to DC with a gain of 10 or more, as of an amplifier that is meant to be closed around and has no loop
+    around it yet. Nothing where a pole lies in the right half-plane: no margin means anything then. Where the network
+    is not trusted ngspice's figures alone are given.
     """
     numbers = subject.numbers
     midband = numbers.midband if numbers.trusted or numbers.simulated is None else numbers.simulated.midband
     if not is_ratio(numbers.network) or abs(midband.gain) <= 1.0 or not numbers.poles.stable:
-        if asked:
-            raise _no_unity_gain(numbers, midband)
-        return None
+        return _without(found, numbers, midband) if asked else None
     unity = find_unity(numbers.network, numbers.midband, numbers.edges) if numbers.trusted else None
     simulated = _simulated(subject, unity)
     if unity is None and simulated is None:
-        if asked:
-            raise _no_unity_gain(numbers, midband)
-        return None
+        return _without(found, numbers, midband) if asked else None
     facts = _facts(found, numbers, unity, simulated)
-    if unity is None or not (asked or _is_open(midband)):
+    closed_already = any(loop.found for loop in found.loops)
+    if unity is None or not (asked or (_is_open(midband) and not closed_already)):
         return facts
     from tauledger.answers.unity_shares import unity_shares
 
     shares = unity_shares(found, numbers, unity)
-    return replace(facts, elements=shares.elements, nodes=shares.nodes)
+    closed = is_follower_stable(numbers.network, numbers.midband)
+    return replace(facts, elements=shares.elements, nodes=shares.nodes, follower_stable=closed)
 
 
-def _no_unity_gain(numbers: Numbers, midband: MidBand) -> InputError:
+def _without(found: Review, numbers: Numbers, midband: MidBand) -> UnityFacts:
     """Say why there is no unity gain."""
+    return UnityFacts(*(None,) * 13, none=_why_none(found, numbers, midband))
+
+
+def _why_none(found: Review, numbers: Numbers, midband: MidBand) -> str:
     if not is_ratio(numbers.network):
-        both = "drive and output must both be voltages or both currents"
-        return InputError("--unity: the response is no plain ratio", both)
-    if abs(midband.gain) <= 1.0:
-        return InputError(f"--unity: the gain at mid-band is {abs(midband.gain):.4g}, no more than 1", LEFT_OUT)
+        return f"a gain in {found.midband.unit} does not fall to 1"
+    unstable = "the circuit is unstable as it is, and no margin means anything"
+    if abs(midband.gain) > 1.0:
+        return "the gain does not fall to 1 beyond mid-band" if numbers.poles.stable else unstable
+    said = f"the gain at mid-band is {abs(midband.gain):.4g}, no more than 1"
     if not numbers.poles.stable:
-        return InputError("--unity: the circuit is unstable as it is, no margin means anything", "open its loop first")
-    return InputError("--unity: the gain does not fall to 1 beyond mid-band", LEFT_OUT)
+        said = f"{said}; {unstable}"
+    h = np.abs(numbers.edges.response)
+    over = np.flatnonzero((h[1:] >= 1.0) != (h[:-1] >= 1.0))
+    if not numbers.trusted or not len(over):
+        return said
+    bounds = [numbers.edges.frequency_hz[k : k + 2] for k in over]
+    places = [engineering(crossing(numbers.network, 1.0, float(a), float(b)), "Hz", 4) for a, b in bounds]
+    return f"{said}; it peaks above: |H| = 1 at {' and '.join(places)}"
 
 
 def _is_open(midband: MidBand) -> bool:
@@ -71,8 +82,8 @@ def _simulated(subject: Subject, unity: Unity | None) -> SimulatedUnity | None:
     simulated = subject.numbers.simulated
     if simulated is None or subject.engine is None:
         return None
-    reach = 0.0 if unity is None else max(unity.hz, unity.gain_margin_at_hz or 0.0)
-    return simulate_unity(subject.engine.sweep, simulated, reach_hz=reach)
+    reach = 0.0 if unity is None else max(unity.hz, unity.margin_at_hz, unity.gain_margin_at_hz or 0.0)
+    return simulate_unity(subject.engine.sweep, simulated, reach_hz=reach, near=unity)
 
 
 def _facts(found: Review, numbers: Numbers, unity: Unity | None, simulated: SimulatedUnity | None) -> UnityFacts:
@@ -100,6 +111,9 @@ def _facts(found: Review, numbers: Numbers, unity: Unity | None, simulated: Simu
         ),
         gain_bandwidth_exact_hz=unity.gain_bandwidth_hz if unity else None,
         further_hz=unity.further_hz if unity else (),
+        margin_at_hz=unity.margin_at_hz if unity else None,
+        half_turns=tuple(HalfTurnFacts(one.hz, -one.below_db) for one in unity.half_turns) if unity else (),
+        midband_phase_deg=float(np.angle(numbers.midband.gain, deg=True)),
     )
 
 

@@ -10,6 +10,7 @@ from msgspec.structs import replace
 from tauledger.answers.elements import PROVED, Element, elements, size, worth_a_row
 from tauledger.compose.helps import LESS
 from tauledger.network.identities import check
+from tauledger.network.midband import in_changed
 from tauledger.network.recompute import scaled
 from tauledger.network.targets import (
     PERCENT,
@@ -19,7 +20,7 @@ from tauledger.network.targets import (
     unity_moves,
     with_capacitance,
 )
-from tauledger.network.unity import Unity
+from tauledger.network.unity import Unity, find_unity
 from tauledger.numbers import Numbers
 from tauledger.record import Review, UnityElement, UnityNode
 
@@ -92,7 +93,13 @@ def _nodes(found: Review, numbers: Numbers, unity: Unity, moves: Mapping[str, Un
     rows.sort(key=lambda row: -size(*changes[row.node]))
     told = []
     for row in rows[:MOST_NODES]:
-        again = follow_unity(with_capacitance(numbers.network, row.node, PROBE_F), numbers.midband, unity)
-        hz, margin = (again.hz, again.phase_margin_deg) if again is not None else (None, None)
-        told.append(replace(row, one_picofarad_hz=hz, one_picofarad_margin_deg=margin))
+        # a picofarad may move the half turn far: what is followed is not enough
+        again = find_unity(
+            probed := with_capacitance(numbers.network, row.node, PROBE_F), in_changed(probed, numbers.midband)
+        )
+        if again is None:
+            told.append(row)
+            continue
+        row = replace(row, one_picofarad_hz=again.hz, one_picofarad_margin_deg=again.phase_margin_deg)
+        told.append(replace(row, one_picofarad_gain_margin_db=again.gain_margin_db))
     return tuple(told)

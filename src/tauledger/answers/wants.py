@@ -22,6 +22,8 @@ from tauledger.record import Remedy, Review, WantChange, WantFacts
 NOT_TRUSTED = "the rebuilt network is not the simulated circuit: nothing can be worked out on it"
 # A best value that brings less than this part of what is missing is no way at all.
 WORTH_A_ROW = 0.02
+GAIN_TO_SPARE_DB = 3.0
+JUMPED = 1e-3
 
 
 def want_facts(found: Review, subject: Subject, wants: tuple[Want, ...]) -> tuple[WantFacts, ...]:
@@ -55,12 +57,15 @@ def _answered(found: Review, subject: Subject, want: Want, now: Figures) -> Want
         now=figure if math.isfinite(figure) else None,
         met=shortfall(want.quantity, figure, want.value) <= 0.0,
         slack=_slack(want, figure),
+        gain_db=found.midband.gain_db,
     )
     if facts.met:
         return facts
-    remedies = tuple(_remedies(found, subject, want, figure))
+    remedies, jumps = _remedies(found, subject, want, figure)
     reached = any(one.reaches for one in remedies)
     says = "" if reached else "no single change of these reaches it" if remedies else "no element here changes it"
+    if jumps and not remedies:
+        says = "|H| is 1 several times with what would move it: f_u jumps, nothing is offered"
     return replace(facts, remedies=remedies, says=says)
 
 
@@ -69,6 +74,8 @@ def _reason(now: Figures, found: Review, numbers: Numbers) -> str:
         return "the circuit is not stable, and no margin or band edge means anything"
     if not is_ratio(numbers.network):
         return f"a gain in {found.midband.unit} does not fall to 1"
+    if now.f_unity_hz is not None:
+        return "the phase at mid-band is more than 60° from 0° and 180°: no margin means anything"
     return "the gain does not fall through 1 above mid-band"
 
 
@@ -82,15 +89,23 @@ def _slack(want: Want, figure: float) -> float | None:
     return want.value - figure if want.quantity in SMALLER_IS_BETTER else figure - want.value
 
 
-def _remedies(found: Review, subject: Subject, want: Want, now: float) -> list[Remedy]:
-    """Try the candidates; what comes after one that makes a combination needless is left out with it."""
+def _remedies(found: Review, subject: Subject, want: Want, now: float) -> tuple[tuple[Remedy, ...], bool]:
+    """Try the candidates; what comes after one that makes a combination needless is left out with it.
+
+    Also tell whether any was dropped because |H| is 1 several times with it, so that f_u is no one frequency. One that
+    costs more than 3 dB of gain goes where there is another.
+    """
     numbers = subject.numbers
     paper = paper_roots(subject)
     remedies: list[Remedy] = []
+    jumps = False
     missing = shortfall(want.quantity, now, want.value)
-    for trial in trials(want.quantity, found, numbers, paper.stage if not paper.halves else None):
+    for trial in trials(want.quantity, found, numbers, paper.bridged if not paper.halves else None):
         outcome = attempt(trial, want.quantity, want.value, numbers)
         if outcome is None:
+            continue
+        if want.quantity == "f_u" and _jumps(outcome, want):
+            jumps = True
             continue
         left = shortfall(want.quantity, outcome.figures.of(want.quantity), want.value)
         if not outcome.reaches and missing - left < WORTH_A_ROW * missing:
@@ -99,7 +114,17 @@ def _remedies(found: Review, subject: Subject, want: Want, now: float) -> list[R
             # the resistor alone does it
             continue
         remedies.append(_remedy(outcome, want, subject))
-    return sorted(remedies, key=lambda one: not one.reaches)
+    kept = [one for one in remedies if one.gain_db >= found.midband.gain_db - GAIN_TO_SPARE_DB]
+    return tuple(sorted(kept or remedies, key=lambda one: not one.reaches)), jumps
+
+
+def _jumps(outcome: Found, want: Want) -> bool:
+    """Whether |H| is 1 several times with this change, or no value in between has the wanted f_u."""
+    if outcome.figures.further_unity_hz:
+        return True
+    hz = outcome.figures.f_unity_hz
+    beyond = hz is not None and abs(math.log(hz / want.value)) > JUMPED
+    return outcome.reaches and beyond and outcome.trial.element is not None
 
 
 def _remedy(outcome: Found, want: Want, subject: Subject) -> Remedy:

@@ -27,7 +27,11 @@ _OPTIONS = (
         "--loop", "loop", metavar="NAME", multiple=True, help="Return ratio at M6, R3, E2 or Q1.base; repeatable."
     ),
     click.option(
-        "--want", "want", metavar="F=V", multiple=True, help="What margin=60 takes; gain_margin, f_u, f_h, f_l too."
+        "--want",
+        "want",
+        metavar="F=V",
+        multiple=True,
+        help="What margin=60 takes, or more; gain_margin, f_u, f_h too; f_l=20 or less.",
     ),
     click.option(
         "--curve", "curve", metavar="CSV", help="Set a measured curve (f_hz,gain_db,phase_deg) beside ngspice."

@@ -34,7 +34,13 @@ def _want(text: str) -> Want:
     from tauledger.asked import Want
 
     name, equals, value = (part.strip() for part in text.partition("="))
+    # figures are least values, f_l a greatest one
+    bound = name[-1:] if name[-1:] in "<>" else ""
+    name = name.removesuffix(bound).strip() if bound else name
     quantity = name.lower()
+    if bound and bound != ("<" if quantity == "f_l" else ">"):
+        meant = "a greatest value" if quantity == "f_l" else "a least value"
+        raise InputError(f"--want {text}: a wanted {name} is {meant}", f"give e.g. {FIGURES}")
     match quantity:
         case "margin":
             degrees = _number(text, value, "deg", "degrees, e.g. margin=60")
@@ -44,7 +50,7 @@ def _want(text: str) -> Want:
         case "gain_margin":
             return Want("gain_margin", _number(text, value, "db", "decibels, e.g. gain_margin=12"))
         case "f_u" | "f_h" | "f_l":
-            hz = hertz(f"--want {name}", value) if equals else 0.0
+            hz = hertz(f"--want {name}{bound}=", value) if equals else 0.0
             if not hz > 0.0:
                 raise InputError(f"--want {text}: no frequency above 0", f"give hertz, e.g. {quantity}=1meg")
             return Want(quantity, hz)
@@ -53,7 +59,7 @@ def _want(text: str) -> Want:
 
 def _number(text: str, value: str, unit: str, right: str) -> float:
     """Read a plain number: a suffix of SPICE would make 60m of 60 degrees a twentieth of one."""
-    bare = value.lower().removesuffix(unit).strip()
+    bare = value.lower().removesuffix("°").removesuffix("degrees").removesuffix(unit).strip()
     if not _PLAIN.fullmatch(bare) or not 0.0 < float(bare) < float("inf"):
         raise InputError(f"--want {text}: not a value above 0", f"give {right}")
     return float(bare)

@@ -1,8 +1,8 @@
 """Unity gain: where |H| first falls to 1 beyond mid-band, and how far the phase there is from a half turn.
 
-The phase margin is 180° plus the phase beyond mid-band, so that the sign of the mid-band gain is taken out; the gain
-margin is how far |H| is below 1 where that phase first reaches −180°. Both say how the amplifier fares with all of its
-output fed back at the sign that opposes, as a follower.
+The phase margin is 180° plus the phase from nominal polarity, the multiple of 180° nearest to the phase at mid-band;
+the gain margin is how far |H| is from 1 where that phase reaches −180°. Both say how the amplifier fares with all of
+its output fed back at the sign that opposes, as a follower. Of several |H| = 1 the smallest margin counts.
 
 Source: Bode, "Network Analysis and Feedback Amplifier Design", 1945 (gain and phase margin); Gray, Hurst, Lewis and
 Meyer, "Analysis and Design of Analog Integrated Circuits", 5th ed. 2009, section 9.3.
@@ -16,6 +16,7 @@ from msgspec import Struct
 from tauledger.network.angle import scanned_angle
 from tauledger.network.assemble import Network
 from tauledger.network.edges import Edges, Miss, crossing, find_edges, narrowed
+from tauledger.network.follower import HalfTurn, gain_margin, polarity, polarity_offset_deg
 from tauledger.network.midband import MidBand
 from tauledger.network.solve import Complex, Real, Solution, log_slope, on_axis, response, solve
 
@@ -23,25 +24,30 @@ HALF_TURN_DEG = 180.0
 BEYOND = 2.0
 FALLS = -0.5
 POINTS_PER_DECADE = 20
+# What is farther below 1 than 180 dB moves no margin, and a line turns the phase without end.
+SMALLEST = 1e-9
+MOST_HALF_TURNS = 20
 
 
 class Unity(Struct, frozen=True):
     """The unity gain frequency of a gain (V/V or A/A) that exceeds 1 at mid-band.
 
-    hz: the first |H| = 1 going out from mid-band, upwards. slope: d ln|H|/d ln f there. phase_slope: d arg H/d ln f
-    there, in radian. phase_margin_deg: 180° plus the phase beyond mid-band. gain_margin_db: −|H| in dB where that phase
-    first reaches −180°, at gain_margin_at_hz; both None where it never does. gain_bandwidth_hz: |A_mid|·f_H, None where
-    there is no f_H. further_hz: later |H| = 1, outwards.
+    hz: the first |H| = 1 going out from mid-band, upwards. slope: d ln|H|/d ln f there. phase_margin_deg: the smallest
+    180° plus phase from nominal polarity of all |H| = 1, at margin_at_hz; None where the polarity is not clear.
+    gain_margin_db: as `follower.gain_margin` has it, at gain_margin_at_hz; both None where the phase never reaches
+    −180°. gain_bandwidth_hz: |A_mid|·f_H, None where there is no f_H. further_hz: later |H| = 1, outwards. half_turns:
+    all of them.
     """
 
     hz: float
     slope: float
-    phase_slope: float
-    phase_margin_deg: float
+    phase_margin_deg: float | None
+    margin_at_hz: float
     gain_margin_db: float | None
     gain_margin_at_hz: float | None
     gain_bandwidth_hz: float | None
     further_hz: tuple[float, ...] = ()
+    half_turns: tuple[HalfTurn, ...] = ()
 
 
 def find_unity(network: Network, midband: MidBand, edges: Edges | None = None) -> Unity | None:
@@ -71,19 +77,27 @@ def find_unity(network: Network, midband: MidBand, edges: Edges | None = None) -
     ]
     if not at:
         return None
-    there = solve(network, on_axis(at[0]))
-    slope = complex(log_slope(network, there)[0])
-    turned_hz = _half_turn(network, midband, frequency, angle.along(frequency, h))
+    there = solve(network, on_axis(np.array(at)))
+    offset = polarity_offset_deg(midband.gain)
+    margin, margin_at_hz = None, at[0]
+    turns: tuple[HalfTurn, ...] = ()
+    if offset is not None:
+        margins = HALF_TURN_DEG + offset + angle.along(np.array(at), there.response)
+        k = int(np.argmin(margins))
+        margin, margin_at_hz = float(margins[k]), at[k]
+        turns = _half_turns(network, midband, frequency, h, offset + angle.along(frequency, h))
+    left = gain_margin(network, midband, turns)
     high = edges.f_high
     return Unity(
         hz=at[0],
-        slope=slope.real,
-        phase_slope=slope.imag,
-        phase_margin_deg=HALF_TURN_DEG + angle.beyond_midband(at[0], complex(there.response[0])),
-        gain_margin_db=None if turned_hz is None else _below_one_db(network, turned_hz),
-        gain_margin_at_hz=turned_hz,
+        slope=float(log_slope(network, there)[0].real),
+        phase_margin_deg=margin,
+        margin_at_hz=margin_at_hz,
+        gain_margin_db=None if left is None else left.below_db,
+        gain_margin_at_hz=None if left is None else left.hz,
         gain_bandwidth_hz=None if high is None or high.hz is None else abs(midband.gain) * high.hz,
         further_hz=tuple(at[1:]),
+        half_turns=turns,
     )
 
 
@@ -111,21 +125,27 @@ def _outwards(network: Network, midband: MidBand, edges: Edges) -> tuple[Real, C
     return np.concatenate([frequency, more]), np.concatenate([h, response(network, more)])
 
 
-def _half_turn(network: Network, midband: MidBand, frequency: Real, phase_deg: Real) -> float | None:
-    """Give where the phase beyond mid-band first reaches −180°, in Hz."""
-    reached = np.flatnonzero(phase_deg <= -HALF_TURN_DEG)
-    if not len(reached) or reached[0] == 0:
-        return None
-    k = int(reached[0])
-    a_hz, b_hz = float(frequency[k - 1]), float(frequency[k])
-    ahead, behind = phase_deg[k - 1] + HALF_TURN_DEG, phase_deg[k] + HALF_TURN_DEG
+def _half_turns(
+    network: Network, midband: MidBand, frequency: Real, h: Complex, phase_deg: Real
+) -> tuple[HalfTurn, ...]:
+    """Give where the phase (k,) from nominal polarity passes −180° or a whole turn beyond, outwards."""
+    turn = np.floor((phase_deg - HALF_TURN_DEG) / 360.0)
+    at = [k for k in np.flatnonzero(turn[1:] != turn[:-1]) if abs(h[k + 1]) >= SMALLEST][:MOST_HALF_TURNS]
+    places = [_half_turn(network, midband, frequency[k : k + 2], phase_deg[k : k + 2]) for k in at]
+    return tuple(HalfTurn(hz, _below_one_db(network, hz)) for hz in places)
 
-    def miss_at(solution: Solution) -> Miss:
-        left = np.angle(-solution.response[0] / midband.gain)
-        return Miss(float(left), float(log_slope(network, solution)[0].imag))
 
-    start_hz = a_hz * (b_hz / a_hz) ** float(ahead / (ahead - behind))
-    return narrowed(network, miss_at, start_hz, (a_hz, b_hz), rises=False)
+def _half_turn(network: Network, midband: MidBand, bracket_hz: Real, phase_deg: Real) -> float:
+    """Give where the phase passes half a turn inside the bracket, in Hz."""
+    first, last = (float(hz) for hz in bracket_hz)
+    ahead, behind = (float(np.mod(one, 360.0)) - HALF_TURN_DEG for one in phase_deg)
+    start = first * (last / first) ** (ahead / (ahead - behind))
+    opposed = -polarity(midband.gain)
+
+    def miss(at: Solution) -> Miss:
+        return Miss(float(np.angle(at.response[0] * opposed)), float(log_slope(network, at)[0].imag))
+
+    return narrowed(network, miss, start, (first, last), rises=behind > ahead)
 
 
 def _below_one_db(network: Network, hz: float) -> float:

@@ -71,6 +71,7 @@ from tauledger.record.response import (
 )
 from tauledger.record.review import DEVICES_SCHEMA, SCHEMA, DevicesTable, Review
 from tauledger.record.unity import (
+    HalfTurnFacts,
     PhaseBudget,
     PhaseRow,
     Remedy,
@@ -106,6 +107,7 @@ __all__ = [
     "EngineFacts",
     "Estimate",
     "Figure",
+    "HalfTurnFacts",
     "Help",
     "ImpedanceCurvePoint",
     "ImpedanceFacts",

@@ -31,7 +31,8 @@ class UnityElement(Struct, frozen=True):
 class UnityNode(Struct, frozen=True):
     """What a capacitance from one node to ground costs: per_farad ∂f_u/∂C in Hz/F, margin_slope in degrees per farad.
 
-    one_picofarad_*: f_u and phase margin computed again with 1 pF there.
+    one_picofarad_*: f_u and phase margin computed again with 1 pF there,
+    gain margin too.
     """
 
     node: str
@@ -40,6 +41,14 @@ class UnityNode(Struct, frozen=True):
     margin_slope: float
     one_picofarad_hz: float | None
     one_picofarad_margin_deg: float | None
+    one_picofarad_gain_margin_db: float | None = None
+
+
+class HalfTurnFacts(Struct, frozen=True):
+    """A frequency where the phase from nominal polarity is −180° or a whole turn beyond, and |H| in dB there; exact."""
+
+    hz: float
+    gain_db: float
 
 
 class UnityFacts(Struct, frozen=True):
@@ -47,9 +56,13 @@ class UnityFacts(Struct, frozen=True):
 
     hand_hz: by hand_formula, which is mid-band gain times f_H by hand where empty, as one dominant pole has it; None
     where that is off by more than a factor 3; difference: hand_hz/simulated_hz − 1 (against
-    exact where nothing was simulated). slope: d ln|H|/d ln f there, exact. phase_margin_deg: 180° plus the phase beyond
-    mid-band; gain_margin_db: how far |H| is below 1 where that phase first reaches −180°, None where it never does;
-    both simulated, *_exact_* by algebra. gain_bandwidth_hz: |A_mid|·f_H, simulated. further_hz: later |H| = 1, exact.
+    exact where nothing was simulated). slope: d ln|H|/d ln f there, exact. phase_margin_deg: the
+    smallest 180° plus phase from nominal polarity of all |H| = 1, at margin_at_hz (exact), None where the polarity is
+    not clear; gain_margin_db: the distance of |H| from 1 at the half turn beyond which the follower changes between
+    stable and not, below 0 where it is not, None where there is none; both simulated, *_exact_* by algebra.
+    gain_bandwidth_hz: |A_mid|·f_H, simulated. further_hz: later |H| = 1, exact. half_turns: all of them, exact.
+    follower_stable: closed around with a gain of 1 no pole lies to the right, None where that was not decided.
+    midband_phase_deg: from which the polarity is read. none: why there is no f_u where it was asked for, else empty.
     elements, nodes: given where the review has a section on unity gain, the largest effect first.
     """
 
@@ -69,6 +82,11 @@ class UnityFacts(Struct, frozen=True):
     further_hz: tuple[float, ...] = ()
     elements: tuple[UnityElement, ...] = ()
     nodes: tuple[UnityNode, ...] = ()
+    margin_at_hz: float | None = None
+    half_turns: tuple[HalfTurnFacts, ...] = ()
+    follower_stable: bool | None = None
+    midband_phase_deg: float | None = None
+    none: str = ""
     hand_formula: str = ""
 
 
@@ -109,7 +127,8 @@ class PhaseBudget(Struct, frozen=True):
     """The phase used up at f_u: rows, others and rest add to 180° − margin_deg, exact.
 
     rows: the poles and zeros that are seen there, the lowest first. others_deg: all others together, so many
-    roots; rest_deg: what delays do beside poles and zeros. stage: the compensated stage in words, empty without one.
+    roots; rest_deg: what delays do beside poles and zeros; midband_deg: what is used at mid-band already, where roots
+    cannot be counted from their asymptotes. stage: the compensated stage in words, empty without one.
     """
 
     at_hz: float
@@ -120,6 +139,7 @@ class PhaseBudget(Struct, frozen=True):
     rest_deg: float
     stage: str
     by_hand: tuple[UnityStep, ...]
+    midband_deg: float = 0.0
 
 
 class WantChange(Struct, frozen=True):
@@ -165,7 +185,7 @@ class WantFacts(Struct, frozen=True):
     """A figure that was wanted (margin, gain_margin, f_u, f_h, f_l) in `unit` (°, dB, Hz) and what it takes.
 
     now: as the circuit is, None where it has no end or cannot be known (`says`). met: nothing is to be done; slack: by
-    how much, in `unit`. remedies: what reaches it first.
+    how much, in `unit`. remedies: what reaches it first. gain_db: at mid-band as the circuit is.
     """
 
     quantity: str
@@ -176,3 +196,4 @@ class WantFacts(Struct, frozen=True):
     slack: float | None
     remedies: tuple[Remedy, ...] = ()
     says: str = ""
+    gain_db: float | None = None

@@ -79,13 +79,16 @@ def _is_it_stable(review: Review) -> str:
     assert facts is not None
     margin, gain_margin = margins(facts)
     hz = known_hz(facts)
-    # where |H| is 1 again farther up, the margin alone does not tell
-    yes = "Yes: a" if margin is not None and not facts.further_hz else "A"
+    if facts.margin_at_hz is not None and facts.margin_at_hz != facts.exact_hz:
+        hz = facts.margin_at_hz
+    yes = {True: "Yes: a", False: "No, in spite of it: a", None: "A"}[facts.follower_stable]
     said = f"{yes} phase margin of {degrees(margin)} is left at {number(hz, 'Hz')}"
     if gain_margin is not None:
         said += f" and a gain margin of {decibels(gain_margin)}"
     if margin is not None and margin <= 0.0:
         said = f"No: the phase is {degrees(-margin)} beyond half a turn at {number(hz, 'Hz')}"
+    if margin is None:
+        return "No margin can be told: the phase at mid-band does not say which polarity the amplifier has."
     cards = [one for one in facts.elements if one.free]
     if cards:
         most = max(cards, key=lambda one: abs(one.phase_margin_deg))

@@ -69,7 +69,8 @@ def render(
 
 def _asked_of_the_response(review: Review, *, verbose: bool) -> tuple[Section, ...]:
     """Give unity gain where it is what the amplifier is about, and gain and phase at single frequencies."""
-    if not unity_shown(review) and not review.at:
+    without = review.f_unity is not None and bool(review.f_unity.none)
+    if not unity_shown(review) and not review.at and not without:
         return ()
     from tauledger.report import at, unity
 

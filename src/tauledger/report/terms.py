@@ -79,9 +79,9 @@ TERMS = {
         "the largest relative difference between the response of the rebuilt network and the sweep of ngspice."
     ),
     "Unity gain, phase margin, gain margin": (
-        "f_u is where the gain has fallen to 1. The phase margin is what the phase there, counted from mid-band, leaves"
-        " of 180°; the gain margin how far the gain is below 1 where all 180° are used up. With all of the output fed "
-        "back the amplifier rings the more the less is left, and oscillates when nothing is."
+        "f_u is where the gain has fallen to 1. The phase margin is what the phase there, from 0° or 180° at mid-band, "
+        "leaves of 180°; the gain margin how far the gain is from 1 where all 180° are used up. With all of the output "
+        "fed back the amplifier rings the more the less is left, and oscillates when nothing is."
     ),
     "Recomputed": "the whole network solved again with that part changed, the operating point held.",
 }

@@ -15,6 +15,8 @@ FIRST_ORDER = "to first order, operating point held"
 def unity_gain(review: Review) -> Section:
     """Give f_u, margins and gain-bandwidth product, simulated, exact and by hand, where they are what it is about."""
     facts = review.f_unity
+    if facts is not None and facts.none:
+        return Section((Prose(f"none: {facts.none}", lead="UNITY GAIN: "),))
     if facts is None or not facts.elements:
         return Section(())
     rows = tuple(Row(cells) for cells in figures(facts))
@@ -40,7 +42,7 @@ def who_sets(review: Review, *, verbose: bool = False) -> Section:
     nodes = facts.nodes if verbose else facts.nodes[:_MOST_NODES]
     if nodes:
         at = tuple(Row(node_cells(node, facts)) for node in nodes)
-        blocks.append(Table("lrr", ("1 pF TO GROUND AT, recomputed", "f_u", "margin"), at))
+        blocks.append(Table("lrrr", ("1 pF TO GROUND AT, recomputed", "f_u", "margin", "gain margin"), at))
     return Section(tuple(blocks), major=True)
 
 
@@ -76,15 +78,46 @@ def remarks(facts: UnityFacts) -> tuple[str, ...]:
         said.append(f"f_u by hand: {coefficients(facts.hand_formula)}.")
     elif facts.hand_hz is not None:
         said.append("f_u by hand: mid-band gain times f_H by hand, as one pole alone has it.")
-    margin, _ = margins(facts)
-    if margin is not None and margin <= 0.0:
-        said.append("No margin is left: closed around with a gain of 1 it is unstable.")
-    if facts.gain_margin_exact_db is None:
-        said.append("No gain margin: the phase never reaches -180° beyond mid-band.")
+    said += _of_the_margins(facts)
+    said += _closed_around(facts)
+    return tuple(said)
+
+
+def _of_the_margins(facts: UnityFacts) -> list[str]:
+    """Say where margins are missing, and where there are several |H| = 1 or half turns."""
+    if facts.exact_hz is None:
+        return []
+    if facts.phase_margin_exact_deg is None:
+        phase = NO_NUMBER if facts.midband_phase_deg is None else f"{facts.midband_phase_deg:.0f}°"
+        return [f"No margin: the phase at mid-band, {phase}, is more than 60° from 0° and 180°; polarity is not clear."]
+    said = []
     if facts.further_hz:
         places = ", ".join(number(hz, "Hz") for hz in facts.further_hz)
-        said.append(f"|H| is 1 again at {places}: the margin at f_u alone does not tell whether a loop is stable.")
-    return tuple(said)
+        said.append(f"|H| is 1 again at {places}; the margin is the smallest, at {number(facts.margin_at_hz, 'Hz')}.")
+    if not facts.half_turns:
+        said.append("No gain margin: the phase never reaches -180° beyond mid-band.")
+    if len(facts.half_turns) > 1:
+        turns = ", ".join(f"{number(one.hz, 'Hz')} ({one.gain_db:+.1f} dB)" for one in facts.half_turns)
+        said.append(f"The phase is -180° with |H| at {turns}.")
+    return said
+
+
+def _closed_around(facts: UnityFacts) -> list[str]:
+    """Say whether the follower is stable, and by how much the gain may rise or fall before it is not."""
+    margin, _ = margins(facts)
+    if facts.follower_stable is None:
+        unstable = margin is not None and margin <= 0.0
+        return ["No margin is left: closed around with a gain of 1 it is unstable."] if unstable else []
+    if not facts.follower_stable:
+        why = "No margin is left" if margin is not None and margin <= 0.0 else "In spite of the margin at f_u"
+        return [f"{why}: closed around with a gain of 1 it is unstable (poles of the follower)."]
+    fall = [one.gain_db for one in facts.half_turns if one.gain_db > 0.0]
+    rise = [-one.gain_db for one in facts.half_turns if one.gain_db <= 0.0]
+    if not fall:
+        return ["Closed around with a gain of 1 it is stable (poles of the follower)."]
+    ways = [f"the gain may rise by {min(rise):.1f} dB"] if rise else []
+    ways.append(f"{'' if rise else 'the gain '}may fall by {min(fall):.1f} dB")
+    return [f"Closed around with a gain of 1 it is conditionally stable: {', and '.join(ways)}."]
 
 
 def margins(facts: UnityFacts) -> tuple[float | None, float | None]:
@@ -112,9 +145,15 @@ def again_cells(one: UnityElement, facts: UnityFacts) -> tuple[str, str, str, st
     return "", _hz_move(one.f_unity_rerun_hz, facts), _margin_move(one.phase_margin_rerun_deg, facts), ""
 
 
-def node_cells(node: UnityNode, facts: UnityFacts) -> tuple[str, str, str]:
-    """Give a node with what 1 pF from it to ground does to f_u and margin, recomputed."""
-    return node.title, _hz_move(node.one_picofarad_hz, facts), _margin_move(node.one_picofarad_margin_deg, facts)
+def node_cells(node: UnityNode, facts: UnityFacts) -> tuple[str, str, str, str]:
+    """Give a node with what 1 pF from it to ground does to f_u and both margins, recomputed."""
+    left, now = node.one_picofarad_gain_margin_db, facts.gain_margin_exact_db
+    return (
+        node.title,
+        _hz_move(node.one_picofarad_hz, facts),
+        _margin_move(node.one_picofarad_margin_deg, facts),
+        NO_NUMBER if now is None else "none" if left is None else signed(left - now, " dB"),
+    )
 
 
 def _hz_move(hz: float | None, facts: UnityFacts) -> str:

@@ -158,6 +158,7 @@ def _unity_gain(upper: Axes, lower: Axes, review: Review) -> None:
     if facts is None or hz is None:
         return
     margin = facts.phase_margin_deg if facts.phase_margin_deg is not None else facts.phase_margin_exact_deg
+    at_hz = facts.margin_at_hz if facts.margin_at_hz is not None and facts.further_hz else hz
     for axes in (upper, lower):
         axes.axvline(hz, color=light("muted"), linewidth=1.0, linestyle=(0, (1, 2)))
     upper.plot([hz], [0.0], marker="D", markersize=4.5, color=light("ink"), linestyle="none")
@@ -165,12 +166,14 @@ def _unity_gain(upper: Axes, lower: Axes, review: Review) -> None:
     upper.annotate(f"f_u {number(hz, 'Hz')}", (hz, 0.0), (-7, -5), **words)
     if margin is None:
         return
-    half_turn = midband_deg(review) - 180.0
+    half_turn = 180.0 * round(midband_deg(review) / 180.0) - 180.0
     low, high = lower.get_ylim()
     lower.set_ylim(min(low, half_turn - 20.0), high)
     lower.axhline(half_turn, color=light("muted"), linewidth=1.0, linestyle=(0, (1, 2)))
-    lower.plot([hz, hz], [half_turn, half_turn + margin], color=light("ink"), linewidth=2.2, solid_capstyle="butt")
-    lower.annotate(f"margin {margin:.1f}°", (hz, half_turn + margin / 2.0), (-7, 5), **words)
+    lower.plot(
+        [at_hz, at_hz], [half_turn, half_turn + margin], color=light("ink"), linewidth=2.2, solid_capstyle="butt"
+    )
+    lower.annotate(f"margin {margin:.1f}°", (at_hz, half_turn + margin / 2.0), (-7, 5), **words)
 
 
 def _roots(axes: Axes, roots: tuple[Root, ...], first: float, last: float, *, narrow: bool) -> None:

@@ -10,6 +10,8 @@ from tauledger.report.tables import phase, unity, wants
 def unity_section(review: Review) -> Section:
     """Give unity gain, its margins, and who sets them."""
     facts = review.f_unity
+    if facts is not None and facts.none:
+        return Section("unity", "Unity gain", (Prose(f"None: {facts.none}."),))
     if facts is None or not facts.elements:
         return Section("unity", "", ())
     blocks: list[Block] = [unity.unity_gain(facts), unity.who_sets(facts)]

@@ -33,6 +33,8 @@ def budget_cells(budget: PhaseBudget) -> tuple[Cells, ...]:
         rows.append((others, "", degrees(budget.others_deg), "", "", ""))
     if abs(budget.rest_deg) >= NOTHING_DEG:
         rows.append(("delay", "", degrees(budget.rest_deg), "", "", ""))
+    if abs(budget.midband_deg) >= NOTHING_DEG:
+        rows.append(("at mid-band already", "", degrees(budget.midband_deg), "", "", ""))
     rows.append(("left for the margin", "", degrees(budget.margin_deg), "", "", ""))
     return tuple(rows)
 

@@ -35,4 +35,4 @@ def who_sets(facts: UnityFacts) -> Grid:
 def at_nodes(facts: UnityFacts) -> Grid:
     """Give what 1 pF from a node to ground does to f_u and margin, each recomputed."""
     rows = tuple(GridRow(node_cells(node, facts), part=node.node) for node in facts.nodes)
-    return Grid("1 pF to ground, recomputed", columns("Node", "f_u", "phase margin"), rows)
+    return Grid("1 pF to ground, recomputed", columns("Node", "f_u", "phase margin", "gain margin"), rows)

@@ -9,6 +9,7 @@ from tauledger.report.tables.grid import Grid, GridRow, columns
 from tauledger.report.wording import NO_NUMBER, degrees, nominal, number, part_title
 
 NAMES = {"margin": "phase margin", "gain_margin": "gain margin", "f_u": "f_u", "f_h": "f_H", "f_l": "f_L"}
+SEEN_DB = 0.1
 # What is shown beside the wanted figure, and the head over that itself.
 BESIDE = {
     "margin": ("f_u", "gain"),
@@ -43,7 +44,8 @@ def verdict(want: WantFacts) -> str:
         return f"{wanted(want)}: {want.says}"
     if want.now is None:
         return f"{wanted(want)}: met, the response has no end there"
-    now = f"{wanted(want)}: now {figure(want, want.now)}"
+    bound = "at most" if want.quantity == "f_l" else "at least"
+    now = f"{wanted(want)} {bound}: now {figure(want, want.now)}"
     if want.met:
         return f"{now}, met with {figure(want, want.slack)} to spare"
     return f"{now}, missed by {figure(want, abs(want.slack or 0.0))}{f'; {want.says}' if want.says else ''}"
@@ -51,7 +53,7 @@ def verdict(want: WantFacts) -> str:
 
 def heads(want: WantFacts) -> Cells:
     """Give the heads of the columns behind the change."""
-    return ("value", "by slope", *BESIDE[want.quantity], OWN[want.quantity], "ngspice")
+    return ("value", "by slope", OWN[want.quantity], "ngspice", *BESIDE[want.quantity])
 
 
 def cells(want: WantFacts, one: Remedy, review: Review) -> Cells:
@@ -68,9 +70,9 @@ def cells(want: WantFacts, one: Remedy, review: Review) -> Cells:
         change_text(one),
         "" if value is None else number(value.value, value.unit, 4),
         by_slope,
-        *others,
         figure(want, one.figure),
         figure(want, one.simulated_figure),
+        *others,
     )
 
 
@@ -79,7 +81,16 @@ def change_text(one: Remedy) -> str:
     put_in = [f"{number(c.value, c.unit, 3)} (1/gm) in series with {c.beside}" for c in one.changes if _put_in(c)]
     moved = [f"C put in, {c.beside}" if c.new else part_title(c.name, c.owner) for c in one.changes if not _put_in(c)]
     together = " and ".join(moved) + (BIAS if one.moves_bias else "")
-    return ", and ".join(filter(None, (*put_in, together))) + ("" if one.reaches else ": not enough")
+    return ", and ".join(filter(None, (*put_in, together))) + ("" if one.reaches else _not_enough(one))
+
+
+def _not_enough(one: Remedy) -> str:
+    """Say how far the value was tried, beyond which next to nothing is to be had."""
+    sought = next((c for c in one.changes if not _put_in(c) and c.before is not None), None)
+    if sought is None or sought.before is None or sought.value == sought.before:
+        return ": not enough"
+    way = "down" if sought.value < sought.before else "up"
+    return f": not enough, tried {way} to {number(sought.value, sought.unit, 3)}"
 
 
 def _put_in(change: WantChange) -> bool:
@@ -97,6 +108,8 @@ def notes(want: WantFacts) -> str:
             if one.says
         ),
     ]
+    if want.gain_db is not None and any(abs(one.gain_db - want.gain_db) >= SEEN_DB for one in want.remedies):
+        told.insert(0, f"gain now {want.gain_db:.2f} dB")
     return "; ".join(told)
 
 
