@@ -126,7 +126,9 @@ class _Inverting(Struct, frozen=True):
 def find_compensated_stage(
     circuit: EquivalentCircuit, resistance_ohm: Mapping[str, float], response: complex
 ) -> CompensatedStage | None:
-    """Find the stage that makes the dominant pole; None where no inverting stage of the signal path is bridged.
+    """Find the bridged stage with the lowest pole; None where no inverting stage of the signal path is bridged.
+
+    Where it does not compensate, the load alone makes that pole.
 
     circuit: the hand circuit, of a balanced one its half. resistance_ohm: by hand, by hand node; the exact one is taken
     where there is none. response: of the whole network, whose output may lie beyond the stage's.
@@ -135,7 +137,7 @@ def find_compensated_stage(
     found = [
         stage
         for inverting in _inverting(circuit, places)
-        if (stage := _stage(circuit, places, inverting, resistance_ohm, response)) is not None and stage.compensates
+        if (stage := _stage(circuit, places, inverting, resistance_ohm, response)) is not None
     ]
     return min(found, key=dominant_hz, default=None)
 
