@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 
+from tauledger.causes.notes import WORTH_A_SHARE
 from tauledger.explain import Explanation
 from tauledger.hand.estimate import InnerLine, LookingIn, MillerTerm, SignalNode
 from tauledger.hand.halves import counted
@@ -85,7 +86,7 @@ def part_rows(numbers: Numbers, explanation: Explanation) -> tuple[PartRow, ...]
                 nodes=part.nodes,
                 value=part.value,
                 klass=klass,
-                in_path=_in_path(open_row, short_row),
+                in_path=_in_path(open_row, short_row, _of(explanation.shares_low, part.name)),
                 weight=_weight(open_row, short_row),
                 resistance_hand_ohm=hand_ohm,
                 resistance_exact_ohm=_finite(_resistance(None if sets_gain else open_row, short_row)),
@@ -245,9 +246,11 @@ def _lower_hand(explanation: Explanation, part: str) -> float | None:
     return next((row.resistance.ohm for row in rows if part in row.parts), None)
 
 
-def _in_path(open_row: OpenConstant | None, short_row: ShortConstant | None) -> bool:
-    row = open_row if open_row is not None else short_row
-    return row is not None and row.in_path
+def _in_path(open_row: OpenConstant | None, short_row: ShortConstant | None, share_low: float | None) -> bool:
+    """Whether signal passes a part: by its weight in the sums, and a short one also where it has a share of f_L."""
+    if open_row is not None:
+        return open_row.in_path
+    return short_row is not None and (short_row.in_path or abs(share_low or 0.0) >= WORTH_A_SHARE)
 
 
 def _weight(open_row: OpenConstant | None, short_row: ShortConstant | None) -> float | None:

@@ -136,11 +136,9 @@ def _find(network: Network, at_hz: float | None, within_hz: tuple[float, float] 
     scan = _scan(network)
     plateaus = _plateaus(network, scan)
     if at_hz is not None:
-        found: MidBand | None = _at(network, at_hz, plateaus)
-    else:
-        found = None if within_hz is None else _find_within(network, scan, plateaus, *within_hz)
-        found = found or _find_anywhere(network, scan, plateaus)
-    return replace(found, within_hz=within_hz)
+        return replace(_at(network, at_hz, plateaus), within_hz=within_hz)
+    inside = None if within_hz is None else _find_within(network, scan, plateaus, *within_hz)
+    return replace(inside or _find_anywhere(network, scan, plateaus), within_hz=within_hz)
 
 
 def _find_within(
