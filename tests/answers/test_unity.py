@@ -17,7 +17,6 @@ from tauledger.asked import Asked
 from tauledger.circuit import NO_CHANGE, Change, Port
 from tauledger.devices.parts import capacitance, resistance, transconductance, voltage_source
 from tauledger.engine.client import Engine
-from tauledger.errors import InputError
 from tauledger.explain import NOTHING
 from tauledger.netlist import read
 from tauledger.network.agreement import Agreement
@@ -284,8 +283,7 @@ def test_a_circuit_with_a_pole_in_the_right_half_plane_has_no_margin_to_speak_of
     )
     assert not find_poles(network).stable
     assert review_network(network).f_unity is None
-    with pytest.raises(InputError, match="unstable"):
-        review_network(network, asked=Asked(unity=True))
+    assert "unstable" in facts_of(review_network(network, asked=Asked(unity=True))).none
 
 
 def test_a_network_that_is_not_trusted_leaves_the_figures_of_ngspice_alone(engine: Engine) -> None:

@@ -97,12 +97,12 @@ def test_what_delays_take_has_a_row_where_there_is_any() -> None:
 
 def test_the_terminal_says_what_a_margin_takes_and_what_is_met() -> None:
     text = "\n".join(lines())
-    assert "WANTED  phase margin 60°: now 31.5°, missed by 28.5°" in text
-    assert "WANTED  f_H 1 kHz: now 1.180 kHz, met with 180.0 Hz to spare" in text
+    assert "WANTED  phase margin 60° at least: now 31.5°, missed by 28.5°" in text
+    assert "WANTED  f_H 1 kHz at least: now 1.180 kHz, met with 180.0 Hz to spare" in text
     assert "824 Ω (1/gm) in series with CC, and CC" in text
     assert "824 Ω (1/gm) in series with CC: not enough" in text
-    assert re.search(r"4.036 pF +3.960 pF +13.83 MHz +87.54 dB +60.0° +60.0°", text)
-    assert re.search(r"gm of M6§ +3.647 mS +3.257 mS +13.83 MHz +87.54 dB +60.0° +–", text)
+    assert re.search(r"4.036 pF +3.960 pF +60.0° +60.0° +13.83 MHz +87.54 dB", text)
+    assert re.search(r"gm of M6§ +3.647 mS +3.257 mS +60.0° +– +13.83 MHz +87.54 dB", text)
     assert "§ moves the operating point; by algebra alone" in re.sub(r"\s+", " ", text)
 
 
@@ -117,17 +117,17 @@ def test_no_line_is_longer_than_the_page(unicode: bool) -> None:
 @pytest.mark.parametrize(
     ("quantity", "unit", "columns"),
     [
-        ("margin", "°", "f_u gain margin"),
-        ("gain_margin", "dB", "f_u gain gain margin"),
-        ("f_u", "Hz", "margin gain f_u"),
-        ("f_h", "Hz", "gain f_H"),
-        ("f_l", "Hz", "gain f_L"),
+        ("margin", "°", "margin ngspice f_u gain"),
+        ("gain_margin", "dB", "gain margin ngspice f_u gain"),
+        ("f_u", "Hz", "f_u ngspice margin gain"),
+        ("f_h", "Hz", "f_H ngspice gain"),
+        ("f_l", "Hz", "f_L ngspice gain"),
     ],
 )
 def test_every_wanted_figure_has_its_columns_in_every_table(quantity: str, unit: str, columns: str) -> None:
     found = replace(ECHO_PREAMP, wants=(replace(MARGIN, quantity=quantity, unit=unit),))
     text = re.sub(" +", " ", render(found, color=False, unicode=True))
-    assert f"WHAT IT TAKES value by slope {columns} ngspice\n" in text
+    assert f"WHAT IT TAKES value by slope {columns}\n" in text
     assert f"| change | value | by slope | {' | '.join(heads(found.wants[0])[2:])} |" in to_markdown(found).decode()
 
 
@@ -136,7 +136,7 @@ def test_page_and_markdown_have_both_sections() -> None:
     for title in ("Phase used up at unity gain", "What it takes"):
         assert f">{title}</h2>" in page
         assert f"### {title}" in text
-    assert "Wanted: phase margin 60°: now 31.5°, missed by 28.5°." in text
+    assert "Wanted: phase margin 60° at least: now 31.5°, missed by 28.5°." in text
     assert "left for the margin" in text
     assert "Unity gain by hand" in text
     assert "- **dominant pole** 1/(2π·R1·C), R1 = 611 kΩ at y" in text
@@ -185,4 +185,4 @@ def test_what_is_put_in_says_where_and_its_value_stands_in_its_column() -> None:
 def test_the_gain_beside_it_stands_in_its_own_decibel() -> None:
     current_driven = replace(ECHO_PREAMP, midband=replace(ECHO_PREAMP.midband, unit="Ω"))
     for review, level in ((ECHO_PREAMP, "dB"), (current_driven, "dBΩ")):
-        assert cells(MARGIN, REACHED, review)[4] == f"{REACHED.gain_db:.2f} {level}"
+        assert cells(MARGIN, REACHED, review)[-1] == f"{REACHED.gain_db:.2f} {level}"

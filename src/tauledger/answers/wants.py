@@ -8,7 +8,7 @@ from msgspec.structs import replace
 
 from tauledger.answers.answer import Subject, restore
 from tauledger.answers.changed_circuit import changed_circuit, is_plain_card
-from tauledger.answers.figures import QUANTITIES, Figures, figures_of, simulated_figure
+from tauledger.answers.figures import MARGINS, QUANTITIES, Figures, figures_of, simulated_figure
 from tauledger.answers.phase_budget import paper_roots
 from tauledger.answers.remedies import SMALLER_IS_BETTER, Found, attempt, shortfall, trials
 from tauledger.asked import Want
@@ -114,7 +114,9 @@ def _remedies(found: Review, subject: Subject, want: Want, now: float) -> tuple[
             # the resistor alone does it
             continue
         remedies.append(_remedy(outcome, want, subject))
-    kept = [one for one in remedies if one.gain_db >= found.midband.gain_db - GAIN_TO_SPARE_DB]
+    kept = [
+        one for one in remedies if want.quantity in MARGINS or one.gain_db >= found.midband.gain_db - GAIN_TO_SPARE_DB
+    ]
     return tuple(sorted(kept or remedies, key=lambda one: not one.reaches)), jumps
 
 
