@@ -21,6 +21,11 @@ def test_every_figure_is_read_as_a_netlist_would_have_its_number() -> None:
     assert wanted(()) == ()
 
 
+def test_a_least_value_may_be_written_as_one_and_degrees_with_their_sign() -> None:
+    assert wanted(("margin>=60°", "f_l<=20")) == (Want("margin", 60.0), Want("f_l", 20.0))
+    assert wanted(("margin=60 degrees",)) == wanted(("margin=60deg",)) == (Want("margin", 60.0),)
+
+
 @pytest.mark.parametrize(
     ("given", "says", "right"),
     [
@@ -36,6 +41,9 @@ def test_every_figure_is_read_as_a_netlist_would_have_its_number() -> None:
         ("f_h=0", "no frequency above 0", "f_h=1meg"),
         ("f_l", "no frequency above 0", "f_l=1meg"),
         ("f_u=fast", "not a frequency", "10k"),
+        ("f_u<=20meg", "a wanted f_u is a least value", "f_u=5meg"),
+        ("f_l>=20", "a wanted f_l is a greatest value", "f_l=20"),
+        ("f_h=", "--want f_h=", "10k"),
         ("q=3", "--want q=3: not a figure that can be wanted", "margin=60 (degrees)"),
         ("", "not a figure that can be wanted", "f_h=1meg"),
     ],

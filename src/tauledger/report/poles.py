@@ -13,6 +13,7 @@ _POLES = 6
 _NEAR, _FAR = 5.0, 50.0
 _EFFECT_SHOWN = 0.02
 _MAKES_THE_EDGE = 0.5
+_USED_DEG = 2.0
 
 
 def poles_and_zeros(review: Review, *, verbose: bool = False) -> Section:
@@ -52,7 +53,15 @@ def _shown_poles(review: Review, *, verbose: bool) -> list[PoleFacts]:
             if away <= math.log(_NEAR) or (rank < 2 and away <= math.log(_FAR)) or pole.real_hz > 0.0:
                 chosen.append((away, pole))
     nearest = [pole for _, pole in sorted(chosen, key=lambda entry: entry[0])[:_POLES]]
+    at_unity = _using_phase(review)
+    nearest += [pole for pole in visible if (pole.real_hz, pole.imag_hz) in at_unity and pole not in nearest]
     return sorted(nearest, key=_size)
+
+
+def _using_phase(review: Review) -> set[tuple[float, float]]:
+    """Give the places of the poles that use more than 2° of the phase at unity gain: none of them is far off."""
+    rows = review.phase_budget.rows if review.phase_budget is not None else ()
+    return {(row.real_hz, row.imag_hz) for row in rows if row.kind == "pole" and abs(row.used_deg) > _USED_DEG}
 
 
 def _shown_zeros(review: Review, *, verbose: bool) -> list[ZeroFacts]:
@@ -124,4 +133,7 @@ def _hidden(review: Review, poles: int, zeros: int) -> str:
         for many, word in ((more_poles, "pole"), (more_zeros, "zero"))
         if many
     ]
-    return f"{' and '.join(told)} cancel or lie far off" if told else ""
+    if not told:
+        return ""
+    one = more_poles + more_zeros == 1
+    return f"{' and '.join(told)} {'cancels or lies' if one else 'cancel or lie'} far off"
