@@ -19,6 +19,7 @@ from tauledger.report.html import to_html
 from tauledger.report.json import to_json
 from tauledger.report.markdown import to_markdown
 from tauledger.report.terminal import render
+from tauledger.report.wording import part_title
 
 BOARD = Path(__file__).parents[2] / "fixtures" / "long_cable.cir"
 LEFT_OUT = "O1 is a line (50 Ω, 100 ns, 2 Ω along it): taken as at DC, as on paper, f_H would be"
@@ -36,6 +37,7 @@ def test_the_terminal_tells_the_share_of_the_delay_and_what_paper_leaves_out(fou
     assert LEFT_OUT in words
     assert "delay of O1 100 ns 89 %" in words
     assert "O1 is a line (50 Ω, 100 ns, 2 Ω along it), till here as at DC" in words
+    assert "f_H: by hand without O1, as lines are at DC; that moves it by " in words
     assert "= group delay without lines" in words
     assert "poles, zeros, time constants and figures by hand leave out its delay" in words
 
@@ -68,3 +70,8 @@ def test_nothing_that_would_help_is_told_with_a_loss(found: Review) -> None:
     told = next(line for line in page.splitlines() if "What would help most?" in line)
     assert "delay of O1" not in told
     assert all(row.f_high_rerun_hz is not None for row in found.helps if row.name == "O1.delay")
+
+
+def test_a_line_of_r_and_c_is_told_by_what_is_changed_its_c() -> None:
+    """Rerun and share scale R·C by C, with R held: less of R would do something else."""
+    assert part_title("O1.rc", "O1") == "C in R·C of O1"

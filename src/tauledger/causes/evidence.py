@@ -131,7 +131,7 @@ def in_words(part: Part) -> str:
     if not part.label:
         return part.owner
     if part.kind == "line":
-        return f"{'R·C' if part.label == 'rc' else part.label} of {part.owner}"
+        return f"{'C in R·C' if part.label == 'rc' else part.label} of {part.owner}"
     head, _, tail = part.label.partition("_")
     return f"{head.upper()}{'_' if tail else ''}{GREEK.get(tail, tail)} of {part.owner}"
 

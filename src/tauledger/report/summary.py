@@ -41,10 +41,21 @@ def band(review: Review) -> Section:
         if edge.peaking_at_hz is not None and edge.peaking_db >= 0.01:
             at = number(edge.peaking_at_hz, "Hz")
             remarks.append(f"{name}: the gain rises {edge.peaking_db:.3g} dB above mid-band at {at} first.")
+        if edge.hand_hz is not None:
+            remarks.extend(_without_lines(name, review))
     head = ("BAND EDGES", "simulated", "exact", "by hand", "phase shift", "peak", "rise time")
     blocks.append(Table("lrrrrrr", head, tuple(rows)))
     blocks.extend(Prose(remark, lead="  ") for remark in remarks)
     return Section(tuple(blocks))
+
+
+def _without_lines(name: str, review: Review) -> list[str]:
+    """Say that a figure by hand leaves out lines that move the edge: what it misses is no fault of the rules."""
+    return [
+        f"{name}: by hand without {cause.where}, as lines are at DC; that moves it by {move(cause.effect)}."
+        for cause in review.causes
+        if cause.cause == "line-left-out" and cause.quantity == name
+    ]
 
 
 def operating_points(review: Review, *, verbose: bool = False) -> Section:

@@ -11,7 +11,7 @@ from tauledger.record import DeviceFacts, Owner, PartRow, Review
 
 _UNITS = {"ohm": "Ω"}
 _GREEK = {"pi": "π", "mu": "μ", "tau": "τ", "beta": "β"}
-_LABELS = {"cexbc": "dQ_be/dV_bc", "rc": "R·C"}
+_LABELS = {"cexbc": "dQ_be/dV_bc", "rc": "C in R·C"}
 _RATIOS = ("", "V/V", "A/A")
 _PART_UNIT = {"capacitance": "F", "transcapacitance": "F", "inductance": "H", "C": "F", "L": "H", "R": "Ω"}
 _PART_UNIT |= {"mutual inductance": "H", "line": "s"}
