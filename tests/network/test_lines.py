@@ -27,6 +27,7 @@ from tauledger.network.ripple import followed
 from tauledger.network.shares import Shares, find_shares
 from tauledger.network.solve import DENSE_LIMIT, Complex, Real, log_slope, on_axis, response, solve
 from tauledger.network.unity import find_unity
+from tauledger.numbers import solve_network
 from tauledger.pipeline import review_network
 
 ENDS = ("near", "0", "out", "0")
@@ -376,3 +377,26 @@ def test_a_stub_that_shorts_the_path_at_dc_is_reviewed_by_its_waves_alone() -> N
     assert found.f_high.exact_hz is not None
     assert found.zeros == ()
     assert found.nodes == ()
+
+
+def test_a_stage_fed_through_a_shorted_line_from_a_held_node_has_a_response_though_the_line_is_a_wire_at_dc() -> None:
+    """A shorted quarter wave of 75 Ω between a supply of 0 V and the output: the gain is highest where it opens."""
+    parts = [
+        voltage_source("VS", "in", "0", 1.0),
+        voltage_source("VCC", "vcc", "0", 0.0),
+        transconductance("G1", ("out", "0"), ("in", "0"), 0.1),
+        resistance("RO", "out", "0", 300.0),
+        line("T1", ("out", "0", "vcc", "0"), 2.5e-9, 75.0),
+    ]
+    numbers = solve_network(Network.from_parts(parts, output=Port("out", "0")))
+    assert numbers.midband.frequency_hz == pytest.approx(100e6, rel=1e-9)
+    assert abs(numbers.midband.gain) == pytest.approx(30.0, rel=1e-9)
+    # |H| = 30/√(1 + (300/(75·tan θ))²), which is 3 dB down where tan θ = 4
+    low, high = numbers.edges.f_low, numbers.edges.f_high
+    assert low is not None
+    assert high is not None
+    assert low.hz == pytest.approx(np.arctan(4.0) / (2.0 * np.pi * 2.5e-9), rel=1e-9)
+    assert high.hz == pytest.approx((np.pi - np.arctan(4.0)) / (2.0 * np.pi * 2.5e-9), rel=1e-9)
+    held = solve_network(Network.from_parts(parts, output=Port("out", "0")), midband_hz=100e6)
+    assert held.edges.f_high is not None
+    assert held.edges.f_high.hz == pytest.approx(high.hz, rel=1e-9)
