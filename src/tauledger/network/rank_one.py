@@ -14,7 +14,7 @@ from msgspec import Struct
 
 from tauledger.errors import NetworkError
 from tauledger.network.assemble import Network
-from tauledger.network.solve import DENSE_LIMIT, MOST_ENTRIES, Complex, Real, admittance
+from tauledger.network.solve import DENSE_LIMIT, MOST_ENTRIES, Complex, Real, admittance, row_scale
 
 
 class Places(Struct, frozen=True):
@@ -36,8 +36,10 @@ def places_of_change(network: Network, out: Real, control: Real, s: Complex) -> 
     response, passes, own = [], [], []
     for first in range(0, len(s), batch):
         at = s[first : first + batch]
+        y = admittance(network, at)
+        scale = row_scale(np.max(np.abs(y), axis=-1, initial=0.0))[..., None]
         try:
-            solved = np.linalg.solve(admittance(network, at), np.broadcast_to(right, (len(at), *right.shape)))
+            solved = np.linalg.solve(y * scale, right * scale)
         except np.linalg.LinAlgError as error:
             raise NetworkError("the small-signal network has no unique solution") from error
         reached = np.einsum("n,knm->km", network.output, solved)

@@ -106,7 +106,7 @@ def _output(network: Network, x: Complex) -> Complex:
 
 
 def _dense(y: Complex, right: Complex) -> Complex:
-    scale = _row_scale(np.max(np.abs(y), axis=-1, initial=0.0))
+    scale = row_scale(np.max(np.abs(y), axis=-1, initial=0.0))
     try:
         x = np.linalg.solve(y * scale[..., None], (right * scale)[..., None])[..., 0]
     except np.linalg.LinAlgError as error:
@@ -140,7 +140,7 @@ def _factor(network: Network, s: complex) -> tuple[SuperLU[np.complex128], Real]
     y.sum_duplicates()
     largest = np.zeros(n)
     np.maximum.at(largest, y.indices, np.abs(y.data))
-    scale = _row_scale(largest)
+    scale = row_scale(largest)
     y.data *= scale[y.indices]
     try:
         return splu(y), scale
@@ -148,7 +148,7 @@ def _factor(network: Network, s: complex) -> tuple[SuperLU[np.complex128], Real]
         raise NetworkError("the small-signal network has no unique solution") from error
 
 
-def _row_scale(largest: Real) -> Real:
+def row_scale(largest: Real) -> Real:
     """Give the power of two that brings the largest entry of a row near 1; 1 for a row of nothing."""
     _, exponent = np.frexp(largest)
     return np.asarray(np.ldexp(1.0, -np.clip(exponent, -MOST_SCALED, MOST_SCALED)), dtype=np.float64)
