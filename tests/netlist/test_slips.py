@@ -41,8 +41,8 @@ def test_a_capital_m_on_a_resistor_is_said_to_be_milli(tmp_path: Path, filler: s
     text = PAD + filler + f"R2 out 0 {written}\n"
     number = written.rstrip("MOhm")
     assert notes_of(tmp_path, text) == [
-        f"{text.count(chr(10))} R2 has {written}: M is milli in SPICE, as m is; {ohm} Ω is taken, write {number}meg for "
-        "megohms"
+        f"{text.count(chr(10))} R2 has {written}: M is milli in SPICE, as m is; {ohm} Ω is taken, write {number}meg "
+        "for megohms"
     ]
 
 

@@ -30,7 +30,7 @@ from tauledger.hand.rules.two_terminal import (
 
 SHORT_FORM = 0.005
 NOT_PRINTED = 0.001
-VISIT_BUDGET = 500
+VISIT_BUDGET = 200
 PRINTED_DEPTH = 2
 
 Element = tuple[str, int]
@@ -79,6 +79,8 @@ def outside(circuit: EquivalentCircuit, node: str, without: frozenset[Element], 
         return Seen(math.inf, "∞")
     found = branches(circuit, node, without, walk)
     ohm = total(found)
+    if len(walk.path) > PRINTED_DEPTH:
+        return Seen(ohm, "")
     shown = carrying(found)
     if len(walk.path) >= PRINTED_DEPTH or len(shown) > 4 or not shown:
         return Seen(ohm, plain(ohm))
@@ -200,7 +202,7 @@ def _cell_branch(circuit: EquivalentCircuit, node: str, k: int, walk: Walk) -> B
     if is_control and is_output:
         beyond = seen(cell.common)
         link = 1.0 / diode_siemens(cell) if cell.body_gm == 0.0 and diode_siemens(cell) > 0.0 else None
-        return _by_rule(DIODE_TOP, cell, f"diode-connected {cell.owner}", {"R_S": beyond}, cell.common, link)
+        return _by_rule(walk, DIODE_TOP, cell, f"diode-connected {cell.owner}", {"R_S": beyond}, cell.common, link)
     if is_control and is_common:
         return _series(CONTROL_ON_COMMON, cell, f"r_o({cell.owner})", cell.r_o, seen(cell.output), cell.output)
     if is_common and is_output:
@@ -214,14 +216,14 @@ def _cell_branch(circuit: EquivalentCircuit, node: str, k: int, walk: Walk) -> B
         if r_e.ohm == 0.0:
             return Branch(f"r_π({cell.owner})", cell.r_pi, f"r_π({cell.owner})", "", cell.common, cell.r_pi)
         r_c = Seen(0.0, "0") if math.isinf(cell.r_o) else seen(cell.output)
-        return _by_rule(BASE, cell, _into(cell, 0), {"R_E": r_e, "R_C": r_c}, cell.common, cell.r_pi)
+        return _by_rule(walk, BASE, cell, _into(cell, 0), {"R_E": r_e, "R_C": r_c}, cell.common, cell.r_pi)
     if is_common:
         if cell.diode_connected:
-            return _by_rule(DIODE_BOTTOM, cell, f"diode-connected {cell.owner}", {"R_D": seen(cell.control)})
+            return _by_rule(walk, DIODE_BOTTOM, cell, f"diode-connected {cell.owner}", {"R_D": seen(cell.control)})
         r_c = Seen(0.0, "0") if math.isinf(cell.r_o) else seen(cell.output)
         if math.isinf(cell.r_pi):
-            return _by_rule(SOURCE, cell, _into(cell, 1), {"R_D": r_c})
-        return _by_rule(EMITTER, cell, _into(cell, 1), {"R_B": seen(cell.control), "R_C": r_c})
+            return _by_rule(walk, SOURCE, cell, _into(cell, 1), {"R_D": r_c})
+        return _by_rule(walk, EMITTER, cell, _into(cell, 1), {"R_B": seen(cell.control), "R_C": r_c})
     if math.isinf(cell.r_o):
         return None
     if cell.control == cell.common:
@@ -230,8 +232,8 @@ def _cell_branch(circuit: EquivalentCircuit, node: str, k: int, walk: Walk) -> B
     if r_e.ohm == 0.0:
         return Branch(f"r_o({cell.owner})", cell.r_o, f"r_o({cell.owner})")
     if math.isinf(cell.r_pi):
-        return _by_rule(DRAIN, cell, _into(cell, 2), {"R_S": r_e})
-    return _by_rule(COLLECTOR, cell, _into(cell, 2), {"R_E": r_e, "R_B": seen(cell.control)})
+        return _by_rule(walk, DRAIN, cell, _into(cell, 2), {"R_S": r_e})
+    return _by_rule(walk, COLLECTOR, cell, _into(cell, 2), {"R_E": r_e, "R_B": seen(cell.control)})
 
 
 def _diode_through(circuit: EquivalentCircuit, node: str, k: int, joint: Joint, walk: Walk) -> Branch:
@@ -272,10 +274,19 @@ def _series(rule: Rule, cell: Cell, symbol: str, ohm: float, beyond: Seen, far: 
 
 
 def _by_rule(
-    rule: Rule, cell: Cell, name: str, seen: dict[str, Seen], far: str = GROUND, link_ohm: float | None = None
+    walk: Walk,
+    rule: Rule,
+    cell: Cell,
+    name: str,
+    seen: dict[str, Seen],
+    far: str = GROUND,
+    link_ohm: float | None = None,
 ) -> Branch:
     around = Outside(control=_ohm(seen, "R_B"), common=_ohm(seen, "R_E", "R_S"), output=_ohm(seen, "R_C", "R_D"))
     ohm = rule.ohm(cell, around)
+    if len(walk.path) > 1:
+        # Only the branches at the node itself are printed with their working.
+        return Branch(name, ohm, name, "", far, link_ohm)
     formula, equals = rule.formula, "="
     if rule.short_ohm is not None and close(rule.short_ohm(cell, around), ohm, SHORT_FORM):
         formula, equals = rule.short, "=" if close(rule.short_ohm(cell, around), ohm, 1e-9) else "≈"

@@ -69,30 +69,41 @@ def part_resistances(bands: Bands, devices: tuple[Device, ...]) -> Mapping[str, 
     circuit = upper_circuit(bands, devices)
     seen: dict[str, LookingIn] = {}
     found: dict[str, LookingIn] = {}
+    at_node: dict[str, LookingIn] = {}
     for capacitor in circuit.capacitors:
         pair = (capacitor.a, capacitor.b)
         key = " ".join(sorted(pair))
         if key not in seen:
-            seen[key] = resistance_across(circuit, *pair)
+            seen[key] = resistance_across(circuit, *pair, at_node=at_node)
         found[capacitor.part] = seen[key]
     return found
 
 
-def resistance_across(circuit: EquivalentCircuit, a: str, b: str) -> LookingIn:
+def resistance_across(
+    circuit: EquivalentCircuit, a: str, b: str, *, at_node: dict[str, LookingIn] | None = None
+) -> LookingIn:
     """Give R_a·(1 − K_ab) + R_b·(1 − K_ba), the resistance in ohm between two nodes by hand; solved where it is off.
 
     With nothing between them that is R_a + R_b; across a common emitter's C_mu it is R_B·(1 + gm·R_C) + R_C.
+    at_node: what was found at single nodes of this circuit, looked up and added to: most nodes end several capacitors.
     """
+    known = {} if at_node is None else at_node
+
+    def seen_at(node: str) -> LookingIn:
+        if node not in known:
+            known[node] = looking_in(circuit, node, node_name(circuit, node))
+        return known[node]
+
     if a == b:
         return LookingIn(0.0, "joined", "both ends at one node", (), "rule")
     if GROUND in (a, b):
         node = b if a == GROUND else a
-        return looking_in(circuit, node, node_name(circuit, node))
+        return seen_at(node)
     exact = circuit.across(a, b)
     sides = []
     for here, there in ((a, b), (b, a)):
         name = node_name(circuit, here)
-        seen, gain = looking_in(circuit, here, name), hand_gain(circuit, here, there)
+        seen, gain = seen_at(here), hand_gain(circuit, here, there)
         sides.append((name, seen, gain))
     ohm = sum(seen.ohm * (1.0 - gain.value) for _, seen, gain in sides)
     still = [abs(gain.value) < NOT_WORTH_A_FACTOR for _, _, gain in sides]

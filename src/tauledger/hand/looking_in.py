@@ -122,10 +122,13 @@ def _one_loop(circuit: EquivalentCircuit, node: str, label: str, rule_ohm: float
     """R = R0/(1 + T): R0 by the rules with one gm at 0, where that is the exact resistance then, within 0.5 %."""
     best: tuple[float, int, list[Branch], float] | None = None
     for k, cell in enumerate(circuit.cells):
+        without_ohm = loop_resistance(circuit, node, k)
+        if not cell.gm or close(without_ohm, exact, LOOP_ACCEPTED):
+            continue
         walk = Walk(muted=k)
         found = branches(circuit, node, frozenset(), walk)
         r0 = total(found)
-        if walk.left < 0 or not cell.gm or not close(r0, loop_resistance(circuit, node, k), LOOP_ACCEPTED):
+        if walk.left < 0 or not close(r0, without_ohm, LOOP_ACCEPTED):
             continue
         change = abs(r0 - rule_ohm)
         if best is None or change < best[0]:
