@@ -18,6 +18,7 @@ from tauledger.report.tables.wants import cells, change_text, heads, verdict
 from tauledger.report.terminal import render
 
 from .literal import ECHO_PREAMP
+from .test_loop import WIRE
 
 BUDGET = PhaseBudget(
     at_hz=21.9e6,
@@ -163,15 +164,15 @@ def test_nothing_of_it_where_nothing_was_found_or_asked() -> None:
 
 def test_a_figure_without_an_end_is_met_and_what_nothing_reaches_says_so() -> None:
     endless = replace(EDGE, now=None, slack=None)
-    assert verdict(endless) == "f_H 1 kHz: met, the response has no end there"
+    assert verdict(endless, FOUND) == "f_H 1 kHz: met, the response has no end there"
     none = replace(MARGIN, remedies=(SHORT,), says="no single change of these reaches it")
-    assert verdict(none).endswith("missed by 28.5°; no single change of these reaches it")
+    assert verdict(none, FOUND).endswith("missed by 28.5°; no single change of these reaches it")
     assert change_text(SHORT).endswith(": not enough")
 
 
 def test_what_cannot_be_known_is_said_and_a_card_in_a_subcircuit_keeps_its_name() -> None:
     unknown = replace(MARGIN, now=None, slack=None, says="nothing can be worked out", remedies=())
-    assert verdict(unknown) == "phase margin 60°: nothing can be worked out"
+    assert verdict(unknown, FOUND) == "phase margin 60°: nothing can be worked out"
     inside = replace(REACHED, changes=(WantChange("X1.CC", "F", 2e-12, 4e-12, owner="X1.CC"),))
     assert change_text(inside) == "X1.CC"
 
@@ -186,3 +187,12 @@ def test_the_gain_beside_it_stands_in_its_own_decibel() -> None:
     current_driven = replace(ECHO_PREAMP, midband=replace(ECHO_PREAMP.midband, unit="Ω"))
     for review, level in ((ECHO_PREAMP, "dB"), (current_driven, "dBΩ")):
         assert cells(MARGIN, REACHED, review)[-1] == f"{REACHED.gain_db:.2f} {level}"
+
+
+def test_a_wanted_margin_of_a_closed_amplifier_says_whose_margin_it_is() -> None:
+    closed = replace(FOUND, loops=(WIRE,))
+    assert verdict(MARGIN, closed).endswith(
+        "(as if the amplifier were closed once more with a gain of 1; its own loop has 62.0°)"
+    )
+    asked = replace(FOUND, loops=(replace(WIRE, found=False),))
+    assert verdict(MARGIN, asked) == verdict(MARGIN, FOUND)

@@ -38,6 +38,7 @@ def render(
         summary.headline(review),
         summary.band(review),
         *_asked_of_the_response(review, verbose=verbose),
+        *_wanted(review),
         *_changed(review),
         summary.operating_points(review, verbose=verbose),
         *_brought_along(review),
@@ -118,11 +119,19 @@ def _loops(review: Review) -> tuple[Section, ...]:
 
 
 def _unity_budget(review: Review) -> tuple[Section, ...]:
-    if review.phase_budget is None and not review.wants:
+    if review.phase_budget is None:
         return ()
-    from tauledger.report import phase, wants
+    from tauledger.report import phase
 
-    return phase.phase_used(review), wants.what_it_takes(review)
+    return (phase.phase_used(review),)
+
+
+def _wanted(review: Review) -> tuple[Section, ...]:
+    if not review.wants:
+        return ()
+    from tauledger.report import wants
+
+    return (wants.what_it_takes(review),)
 
 
 def _drives_and_outputs(review: Review) -> tuple[Section, ...]:

@@ -11,7 +11,7 @@ def what_it_takes(review: Review) -> Section:
     """Give every wanted figure: met with what is to spare, or the changes that reach it, and those that do not."""
     blocks: list[Block] = []
     for want in review.wants:
-        blocks.append(Prose(verdict(want), lead="WANTED  ", style=HEADING if want.met else CAUTION))
+        blocks.append(Prose(verdict(want, review), lead="WANTED  ", style=HEADING if want.met else CAUTION))
         if want.remedies:
             rows = tuple(Row(cells(want, one, review)) for one in want.remedies)
             head = ("WHAT IT TAKES", *heads(want))

@@ -37,7 +37,7 @@ def phase_section(review: Review) -> Section:
 
 def wants_section(review: Review) -> Section:
     """Give what was wanted, and the changes that would meet it."""
-    verdicts = (Prose(f"Wanted: {wants.verdict(want)}.") for want in review.wants)
+    verdicts = (Prose(f"Wanted: {wants.verdict(want, review)}.") for want in review.wants)
     blocks: tuple[Block, ...] = (*verdicts, *wants.what_it_takes(review))
     return Section("wants", "What it takes", blocks)
 

@@ -38,8 +38,20 @@ def wanted(want: WantFacts) -> str:
     return f"{NAMES[want.quantity]} {want.wanted:.4g}{'°' if want.unit == '°' else ' dB'}"
 
 
-def verdict(want: WantFacts) -> str:
+# Of an amplifier that a loop closes already these are not the margins of that loop.
+CLOSED_ONCE_MORE = ("margin", "gain_margin")
+
+
+def verdict(want: WantFacts, review: Review) -> str:
     """Say in a line whether the figure is met, and with how much to spare, or by how much it is missed."""
+    own = next((loop.phase_margin_deg for loop in review.loops if loop.found), None)
+    if want.quantity not in CLOSED_ONCE_MORE or own is None:
+        return _verdict(want)
+    closed = f"as if the amplifier were closed once more with a gain of 1; its own loop has {degrees(own)}"
+    return f"{_verdict(want)} ({closed})"
+
+
+def _verdict(want: WantFacts) -> str:
     if want.now is None and not want.met:
         return f"{wanted(want)}: {want.says}"
     if want.now is None:
