@@ -61,7 +61,7 @@ def test_what_reaches_the_margin_comes_first_and_does_so_exactly(servo: Review) 
     assert want.now == pytest.approx(servo.f_unity.phase_margin_exact_deg if servo.f_unity else 0.0, abs=1e-9)
     assert [one.reaches for one in want.remedies] == sorted((one.reaches for one in want.remedies), reverse=True)
     reached = [one for one in want.remedies if one.reaches]
-    assert {names(one) for one in reached} == {("CC",), ("RZ", "CC"), ("CL",), ("M6.gm",)}
+    assert {names(one) for one in reached} == {("CC",), ("RZ",), ("RZ", "CC"), ("CL",), ("M6.gm",)}
     assert [one.phase_margin_deg for one in reached] == pytest.approx([60.0] * len(reached), abs=1e-4)
 
 
@@ -105,6 +105,19 @@ def test_the_netlist_with_a_resistor_at_one_over_gm_in_series_has_the_margin(
     assert changed.f_unity is not None
     assert changed.f_unity.phase_margin_deg == pytest.approx(60.0, abs=1e-3)
     assert changed.f_unity.simulated_hz == near(both.f_unity_hz, rel=1e-3)
+
+
+def test_a_resistor_above_one_over_gm_does_what_one_over_gm_does_not(
+    servo: Review, engine: Engine, tmp_path: Path
+) -> None:
+    (series,) = remedy(servo, "margin", "RZ").changes
+    assert series.over_gm is not None
+    assert 1.0 < series.over_gm < 10.0
+    board = tmp_path / "nulled.cir"
+    board.write_text(SERVO.read_text().replace("CC y out 2.2p", f"RZ y z {series.value!r}\nCC z out 2.2p"))
+    changed = review(board, engine=engine)
+    assert changed.f_unity is not None
+    assert changed.f_unity.phase_margin_deg == pytest.approx(60.0, abs=1e-3)
 
 
 def test_the_slope_alone_is_not_enough_and_is_told_beside(servo: Review) -> None:

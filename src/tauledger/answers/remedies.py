@@ -42,6 +42,10 @@ CLEAR_OF_IT = math.log(1.1)
 MOST_FREE = 3
 # A capacitor that is put in begins at this part of what is across the stage, and may grow to its inverse.
 LEAST_ACROSS = 0.01
+# A resistor in series with the compensation is tried up to this many times 1/gm, in steps, then narrowed to 1e-7.
+MOST_OVER_GM = 10.0
+WIDER = 1.25
+HALVINGS = 21
 # Where a figure cannot be reached, the change that brings this much of what can be had.
 MOST_OF_IT = 0.95
 
@@ -50,13 +54,14 @@ class Trial(Struct, frozen=True):
     """One candidate: the element whose value is sought, None where there is none, and a resistor that is put in.
 
     twin: in a balanced circuit the same element of the other half, which is changed with it. added: the element itself,
-    where it is a capacitor that is put in.
+    where it is a capacitor that is put in. over_gm: the resistor times the gm of the stage, 1 as in the books.
     """
 
     element: Element | None
     series: SeriesResistor | None = None
     twin: Element | None = None
     added: AddedCapacitor | None = None
+    over_gm: float = 1.0
 
     @property
     def farthest(self) -> float:
@@ -139,10 +144,7 @@ def attempt(trial: Trial, quantity: str, wanted: float, numbers: Numbers) -> Fou
     finds, and where they do not come to agree the value is sought by such searches alone.
     """
     if trial.element is None:
-        figures = _figures(trial, 1.0, numbers)
-        if figures is None:
-            return None
-        return Found(trial, 1.0, None, shortfall(quantity, figures.of(quantity), wanted) <= 0.0, figures)
+        return _resistor_alone(trial, quantity, wanted, numbers)
     followed, aim = _follow(trial, quantity, numbers), wanted
     for _ in range(CORRECTIONS):
         found = _solved(trial, quantity, aim, numbers, followed)
@@ -158,6 +160,39 @@ def attempt(trial: Trial, quantity: str, wanted: float, numbers: Numbers) -> Fou
         return None if figures is None else figures.of(quantity)
 
     return _solved(trial, quantity, wanted, numbers, searched)
+
+
+def _resistor_alone(trial: Trial, quantity: str, wanted: float, numbers: Numbers) -> Found | None:
+    """Put the resistor in at 1/gm; where that is not enough, the least of up to ten times as much that is."""
+    first = _with_resistor(trial, 1.0, quantity, wanted, numbers)
+    if first is None or first.reaches:
+        return first
+    short, reached = 1.0, None
+    while reached is None and short < MOST_OVER_GM:
+        tried = _with_resistor(trial, min(WIDER * short, MOST_OVER_GM), quantity, wanted, numbers)
+        if tried is not None and tried.reaches:
+            reached = tried
+        else:
+            short = min(WIDER * short, MOST_OVER_GM)
+    if reached is None:
+        return first
+    for _ in range(HALVINGS):
+        tried = _with_resistor(trial, math.sqrt(short * reached.trial.over_gm), quantity, wanted, numbers)
+        if tried is not None and tried.reaches:
+            reached = tried
+        else:
+            short = math.sqrt(short * reached.trial.over_gm)
+    return reached
+
+
+def _with_resistor(trial: Trial, over_gm: float, quantity: str, wanted: float, numbers: Numbers) -> Found | None:
+    if trial.series is None:
+        return None
+    wider = replace(trial, series=replace(trial.series, ohm=over_gm * trial.series.ohm), over_gm=over_gm)
+    figures = _figures(wider, 1.0, numbers)
+    if figures is None:
+        return None
+    return Found(wider, 1.0, None, shortfall(quantity, figures.of(quantity), wanted) <= 0.0, figures)
 
 
 def _solved(

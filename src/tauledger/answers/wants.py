@@ -135,7 +135,16 @@ def _remedy(outcome: Found, want: Want, subject: Subject) -> Remedy:
     changes: list[WantChange] = []
     if series is not None:
         changes.append(
-            WantChange(series.name, "Ω", None, series.ohm, new=True, beside=series.capacitor, owner=series.name)
+            WantChange(
+                series.name,
+                "Ω",
+                None,
+                series.ohm,
+                new=True,
+                beside=series.capacitor,
+                owner=series.name,
+                over_gm=outcome.trial.over_gm,
+            )
         )
     if element is not None:
         first = None if outcome.first_order is None else element.value * outcome.first_order

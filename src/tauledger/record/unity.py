@@ -147,6 +147,7 @@ class WantChange(Struct, frozen=True):
     capacitor "out to b". before: None where new.
 
     value: what it must be, in `unit`, exact. first_order: what the slope alone would say, None where it leads nowhere.
+    over_gm: of a resistor that is put in, times the gm of the stage.
     """
 
     name: str
@@ -157,6 +158,7 @@ class WantChange(Struct, frozen=True):
     new: bool = False
     beside: str = ""
     owner: str = ""
+    over_gm: float | None = None
 
 
 class Remedy(Struct, frozen=True):

@@ -88,9 +88,17 @@ def cells(want: WantFacts, one: Remedy, review: Review) -> Cells:
     )
 
 
+def _over_gm(change: WantChange) -> str:
+    """Write a resistor as a part of 1/gm: "1/gm", "2.3/gm"."""
+    over = 1.0 if change.over_gm is None else change.over_gm
+    return f"{over:.3g}/gm"
+
+
 def change_text(one: Remedy) -> str:
     """Name a change: "824 Ω (1/gm) in series with CC, and CC"; marks one that is not enough or moves the bias."""
-    put_in = [f"{number(c.value, c.unit, 3)} (1/gm) in series with {c.beside}" for c in one.changes if _put_in(c)]
+    put_in = [
+        f"{number(c.value, c.unit, 3)} ({_over_gm(c)}) in series with {c.beside}" for c in one.changes if _put_in(c)
+    ]
     moved = [f"C put in, {c.beside}" if c.new else part_title(c.name, c.owner) for c in one.changes if not _put_in(c)]
     together = " and ".join(moved) + (BIAS if one.moves_bias else "")
     return ", and ".join(filter(None, (*put_in, together))) + ("" if one.reaches else _not_enough(one))
