@@ -242,7 +242,7 @@ def test_what_keeps_every_method_off_is_named_with_the_nearest() -> None:
 
 
 def test_an_edge_far_from_all_poles_and_zeros_is_set_by_what_they_leave_out() -> None:
-    """A line's delay, for one: the poles take it as at DC."""
+    """The other edge of a narrow band, for one."""
     single = of_nodes([1e-6], [-1e6])
     told = why_none(single, 0.1 * 1e6 / (2 * math.pi))
     assert told.startswith("what poles and zeros leave out sets the edge, they give +900 %;")

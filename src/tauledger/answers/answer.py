@@ -38,15 +38,16 @@ def answer(found: Review, subject: Subject, asked: Asked) -> Review:
 
         found = with_loops(found, subject, asked.loops)
     found = with_unity_gain(found, subject, asked=asked.unity)
-    if found.f_unity is not None and found.f_unity.elements:
+    unity = found.f_unity
+    if unity is not None and unity.elements:
         from tauledger.answers.phase_budget import phase_budget
 
         budget = phase_budget(found, subject)
         found = replace(found, phase_budget=budget)
-        if budget is not None and found.f_unity is not None:
+        if budget is not None:
             from tauledger.answers.unity import with_formula
 
-            found = replace(found, f_unity=with_formula(found.f_unity, budget.by_hand))
+            found = replace(found, f_unity=with_formula(unity, budget.by_hand))
     if asked.at_hz:
         from tauledger.answers.at import at_facts
 
@@ -95,7 +96,7 @@ def restore(subject: Subject) -> None:
 def with_unity_gain(found: Review, subject: Subject, *, asked: bool) -> Review:
     """Add f_u and its margins where the gain is a plain ratio above 1.
 
-    asked: who sets them is wanted wherever there is one. Raises InputError where it was asked and there is none.
+    asked: who sets them is wanted wherever there is one, and the reason where there is none.
     """
     if not asked and not (is_ratio(subject.numbers.network) and found.midband.gain_db > 0.0):
         return found

@@ -143,8 +143,8 @@ def attempt(trial: Trial, quantity: str, wanted: float, numbers: Numbers) -> Fou
     followed from where it is; the value found is proved by a search of the whole response and corrected by what that
     finds, and where they do not come to agree the value is sought by such searches alone.
     """
-    if trial.element is None:
-        return _resistor_alone(trial, quantity, wanted, numbers)
+    if trial.element is None and trial.series is not None:
+        return _resistor_alone(trial, trial.series, quantity, wanted, numbers)
     followed, aim = _follow(trial, quantity, numbers), wanted
     for _ in range(CORRECTIONS):
         found = _solved(trial, quantity, aim, numbers, followed)
@@ -162,14 +162,24 @@ def attempt(trial: Trial, quantity: str, wanted: float, numbers: Numbers) -> Fou
     return _solved(trial, quantity, wanted, numbers, searched)
 
 
-def _resistor_alone(trial: Trial, quantity: str, wanted: float, numbers: Numbers) -> Found | None:
+def _resistor_alone(
+    trial: Trial, series: SeriesResistor, quantity: str, wanted: float, numbers: Numbers
+) -> Found | None:
     """Put the resistor in at 1/gm; where that is not enough, the least of up to ten times as much that is."""
-    first = _with_resistor(trial, 1.0, quantity, wanted, numbers)
+
+    def put_in(over_gm: float) -> Found | None:
+        wider = replace(trial, series=replace(series, ohm=over_gm * series.ohm), over_gm=over_gm)
+        figures = _figures(wider, 1.0, numbers)
+        if figures is None:
+            return None
+        return Found(wider, 1.0, None, shortfall(quantity, figures.of(quantity), wanted) <= 0.0, figures)
+
+    first = put_in(1.0)
     if first is None or first.reaches:
         return first
     short, reached = 1.0, None
     while reached is None and short < MOST_OVER_GM:
-        tried = _with_resistor(trial, min(WIDER * short, MOST_OVER_GM), quantity, wanted, numbers)
+        tried = put_in(min(WIDER * short, MOST_OVER_GM))
         if tried is not None and tried.reaches:
             reached = tried
         else:
@@ -177,22 +187,12 @@ def _resistor_alone(trial: Trial, quantity: str, wanted: float, numbers: Numbers
     if reached is None:
         return first
     for _ in range(HALVINGS):
-        tried = _with_resistor(trial, math.sqrt(short * reached.trial.over_gm), quantity, wanted, numbers)
+        tried = put_in(math.sqrt(short * reached.trial.over_gm))
         if tried is not None and tried.reaches:
             reached = tried
         else:
             short = math.sqrt(short * reached.trial.over_gm)
     return reached
-
-
-def _with_resistor(trial: Trial, over_gm: float, quantity: str, wanted: float, numbers: Numbers) -> Found | None:
-    if trial.series is None:
-        return None
-    wider = replace(trial, series=replace(trial.series, ohm=over_gm * trial.series.ohm), over_gm=over_gm)
-    figures = _figures(wider, 1.0, numbers)
-    if figures is None:
-        return None
-    return Found(wider, 1.0, None, shortfall(quantity, figures.of(quantity), wanted) <= 0.0, figures)
 
 
 def _solved(

@@ -21,7 +21,7 @@ ZERO_MATTERS = 0.10
 AS_GOOD = 0.04
 OF_USE = 0.10
 BY_LUCK = 0.05
-# All poles and zeros are the whole response but for lines and the other edge.
+# All poles and zeros are the whole response but for the other edge; lines are judged before.
 OUTSIDE = 0.50
 UPPER = ("lowest node alone", "all nodes together")
 LOWER = ("highest capacitor alone", "all capacitors together")

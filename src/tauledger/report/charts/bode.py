@@ -49,12 +49,7 @@ def bode_chart(review: Review, *, narrow: bool = False) -> str:
         lower.set_ylabel("phase in degrees")
         low, high = lower.get_ylim()
         lower.set_ylim(max(low, midband_deg(review) - MOST_DEG), min(high, midband_deg(review) + MOST_DEG))
-        degree_ticks(lower)
-        lower.set_xlabel("frequency")
-        hertz_ticks(lower, most=4 if narrow else 8)
-        for axes in (upper, lower):
-            axes.grid(axis="both")
-            axes.set_axisbelow(True)
+        over_frequency(upper, lower, narrow=narrow)
         _edges(upper, lower, review, narrow=narrow)
         _unity_gain(upper, lower, review)
         _roots(upper, near_roots(review), first, last, narrow=narrow)
@@ -111,6 +106,16 @@ def _measured(upper: Axes, lower: Axes, review: Review, first: float, last: floa
         middle = nearest(tuple(point.frequency_hz for point in curve.points), review.midband.frequency_hz)
         turns = turns_deg(review, curve.points[middle].reference_deg)
         lower.plot(frequency, [degrees + off + turns for degrees, off in by_phase], **look)
+
+
+def over_frequency(upper: Axes, lower: Axes, *, narrow: bool) -> None:
+    """Give two stacked panels, the lower one in degrees, one frequency axis in Hz below them and a grid."""
+    degree_ticks(lower)
+    lower.set_xlabel("frequency")
+    hertz_ticks(lower, most=4 if narrow else 8)
+    for axes in (upper, lower):
+        axes.grid(axis="both")
+        axes.set_axisbelow(True)
 
 
 def degree_ticks(axes: Axes) -> None:

@@ -5,7 +5,7 @@ from __future__ import annotations
 import textwrap
 
 from tauledger.record import ImpedanceFacts, Review
-from tauledger.report.charts.bode import degree_ticks, hertz_ticks
+from tauledger.report.charts.bode import over_frequency
 from tauledger.report.charts.style import blank, light, styled, to_svg
 from tauledger.report.impedances import SIDES
 from tauledger.report.wording import number
@@ -43,12 +43,7 @@ def impedance_chart(review: Review, *, narrow: bool = False) -> str:
         upper.yaxis.set_minor_locator(NullLocator())
         upper.set_ylabel("|Z|")
         lower.set_ylabel("angle in degrees")
-        degree_ticks(lower)
-        lower.set_xlabel("frequency")
-        hertz_ticks(lower, most=4 if narrow else 8)
-        for axes in (upper, lower):
-            axes.grid(axis="both")
-            axes.set_axisbelow(True)
+        over_frequency(upper, lower, narrow=narrow)
         columns = 1 if narrow or max(len(one.name) for one in drawn) > WIDEST_NAME else 2
         upper.legend(loc="lower left", bbox_to_anchor=(0.0, 1.0), ncols=columns, frameon=False, borderpad=0.0)
         told = "Input and output impedance, size and angle over frequency"

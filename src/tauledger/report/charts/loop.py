@@ -7,7 +7,7 @@ from itertools import pairwise
 from typing import TYPE_CHECKING
 
 from tauledger.record import LoopCurve, LoopFacts, Review
-from tauledger.report.charts.bode import degree_ticks, hertz_ticks
+from tauledger.report.charts.bode import over_frequency
 from tauledger.report.charts.style import blank, light, styled, to_svg
 from tauledger.report.wording import number
 
@@ -34,12 +34,7 @@ def loop_chart(review: Review, *, narrow: bool = False) -> str:
         upper.set_ylabel("|T| in dB")
         lower.set_ylabel("phase in degrees")
         lower.set_ylim(_phase_range(curve))
-        degree_ticks(lower)
-        lower.set_xlabel("frequency")
-        hertz_ticks(lower, most=4 if narrow else 8)
-        for axes in (upper, lower):
-            axes.grid(axis="both")
-            axes.set_axisbelow(True)
+        over_frequency(upper, lower, narrow=narrow)
         _mark(upper, lower, facts, curve)
         return to_svg(figure, key="loop", title=_title(facts), narrow=narrow)
 
